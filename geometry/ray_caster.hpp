@@ -1,0 +1,48 @@
+// SPDX-License-Identifier: Apache-2.0
+#pragma once
+
+#include "geometry/domain.hpp"
+#include "geometry/surface.hpp"
+
+#include <atomic>
+#include <cstdint>
+#include <memory>
+
+namespace rille::geometry {
+
+/// Where a ray ended. `direction` is the unit direction of flight at the end, after the folds at
+/// mirror sides; `point` lies inside the period. `lost` = numerically neither (counted).
+struct Hit {
+    enum class Kind : std::uint8_t { surface, open, lost };
+    Kind kind = Kind::open;
+    int element = -1;
+    double distance = 0; ///< path length [nm]
+    Vec3 point;
+    Vec3 direction;
+};
+
+/// First hits of straight rays on one Surface, with mirror or periodic sides built in. A ray that
+/// crosses z_open upwards is in the open; z_open must lie above the whole surface. Extruded: rays
+/// are three-dimensional, the surface infinite along y. Thread-safe; the same ray gives the same
+/// bits from any thread.
+class RayCaster {
+  public:
+    RayCaster(const Domain&, const Surface&, double z_open);
+    ~RayCaster();
+    RayCaster(const RayCaster&) = delete;
+    RayCaster& operator=(const RayCaster&) = delete;
+
+    /// direction: unit. `from_element` is the element the ray leaves (never hit at its start), or
+    /// -1 for a ray that starts in the gas.
+    Hit trace(const Vec3& origin, const Vec3& direction, int from_element) const;
+    double z_open() const;
+    /// Rays traced and rays lost so far.
+    std::uint64_t traced() const;
+    std::uint64_t lost() const;
+
+  private:
+    struct Impl;
+    std::unique_ptr<Impl> impl_;
+};
+
+} // namespace rille::geometry
