@@ -1,0 +1,57 @@
+// SPDX-License-Identifier: Apache-2.0
+#pragma once
+
+#include "fluxes/exchange.hpp"
+#include "fluxes/ions.hpp"
+#include "fluxes/mechanism.hpp"
+#include "geometry/domain.hpp"
+#include "geometry/rates.hpp"
+#include "geometry/ray_caster.hpp"
+#include "geometry/surface.hpp"
+
+#include <cstdint>
+#include <vector>
+
+namespace rille::fluxes {
+
+/// What the plasma sends and how finely it is followed.
+struct Sources {
+    std::vector<IonSource> ions;         ///< in the order of Mechanism::ions
+    std::vector<NeutralSource> neutrals; ///< in the order of Mechanism::neutrals
+    double wafer_temperature_k = 300;
+};
+struct Sampling {
+    int rays_per_element = 64;
+    int ions_per_species = 65536;
+    int ion_directions = 256;
+    std::uint64_t seed = 1;
+    std::uint64_t refresh = 0;
+};
+
+/// Materials that a step may meet at each element, outermost first: reach[first[e]..first[e + 1]).
+struct MaterialsInReach {
+    std::vector<int> first;
+    std::vector<int> material;
+};
+
+/// Everything about one surface at one instant. Vectors over elements unless said otherwise.
+struct SurfaceStep {
+    geometry::NormalRates rates;
+    std::vector<SurfaceResponse> response;    ///< of the outermost material, at the element's normal
+    std::vector<std::vector<double>> neutral; ///< [species][element] impinging flux [nm^-2 s^-1]
+    std::vector<std::vector<double>> ion_flux; ///< [species][element] direct, [nm^-2 s^-1]
+    /// rate_batch[b][e]: the rate had only batch b been used; their spread is the sampling error.
+    std::vector<std::vector<double>> rate_batch;
+    std::vector<int> growth_material; ///< film material that grows on the element, or -1
+    int iterations = 0;               ///< of transport and kinetics against each other
+    double residual = 0;              ///< largest change of a sticking probability in the last one
+};
+
+/// Transport and kinetics iterated to convergence of every sticking probability (1e-6), throws
+/// NumericsError if that fails. `previous` (may be null) warm-starts when sizes agree.
+SurfaceStep solve_surface(const geometry::Domain&, const geometry::Surface&,
+                          const geometry::RayCaster&, const MaterialsInReach&, const Mechanism&,
+                          const std::vector<IonReflection>& reflection, const Sources&,
+                          const Sampling&, const SurfaceStep* previous);
+
+} // namespace rille::fluxes
