@@ -12,7 +12,7 @@ namespace rille::geometry {
 /// The front as a set of elements, taken from the sub-cell zero contour: exactly one period.
 ///
 /// extruded: an element is a straight segment in the plane y = 0. corners = {a, b, -1, -1}; walking
-/// from a to b the gas lies on the left, so a flat open surface runs from +x to -x. Elements of one
+/// from a to b the gas lies on the left, so a flat open surface runs from -x to +x. Elements of one
 /// chain are stored in walking order and joined through `next` and `previous` (-1 at a mirror
 /// side; in a periodic domain the chain continues on the other side of the period).
 /// full: an element is a planar or bilinear quad {a, b, c, d}, anticlockwise seen from the gas;
