@@ -9,11 +9,16 @@ namespace rille::geometry {
 namespace {
 
 constexpr double pi = 3.14159265358979323846;
-constexpr double near = 1.05;    ///< [cells] closer to a corner phi is disturbed by the other face
-constexpr double far = 3.15;     ///< [cells] the fitted lines reach to here
-constexpr double reach = 4.5;    ///< [cells] of contour needed on either side
-constexpr double spacing = 1.5;  ///< [cells] least arc between two corners
+constexpr double window = 2.1;  ///< [cells] length of the fitted pieces
+constexpr double reach = 6.5;   ///< [cells] of contour needed on either side
+constexpr double spacing = 2.3; ///< [cells] least arc between two corners
 constexpr double threshold = pi / 6;
+
+/// Closer to a corner than this [cells] an edge of the grid may end nearer to the other face than
+/// to the one it crosses (bisector of the corner), so that phi along it bends.
+double disturbed(double turned) {
+    return 1.05 * std::clamp(std::tan(0.5 * std::min(std::fabs(turned), 3.0)), 1.0, 3.0);
+}
 
 double turn(const Vec3& from, const Vec3& to) { // left turns positive, in (-pi, pi]
     return std::atan2(from.x * to.z - from.z * to.x, from.x * to.x + from.z * to.z);
@@ -97,16 +102,24 @@ struct Line {
     bool good = false;
 };
 
-/// Least-squares line through the points between `near` and `far` of `corner` along the chain, on
-/// one side of arc s (direction -1 or +1) and no further than `limit` cells of arc.
-Line fit_side(const Padded& c, double s, int direction, const Vec3& corner, double h, double limit) {
-    for (const double skip : {near, 0.7 * near, 0.4 * near}) {
+struct RebuiltCorner {
+    double s = 0;
+    Vec3 p;
+    Line left, right;
+    double near = disturbed(0); ///< [cells]
+};
+
+/// Least-squares line through the points of one side (direction -1 or +1) beyond the disturbed
+/// ones, no further than `limit` cells of arc.
+Line fit_side(const Padded& c, const RebuiltCorner& corner, int direction, double h, double limit) {
+    for (const double skip : {corner.near, 0.7 * corner.near, 0.4 * corner.near}) {
+        const double far = corner.near + window, s = corner.s;
         Vec3 mean(0, 0, 0);
         std::vector<Vec3> used;
         const int start = static_cast<int>(std::lower_bound(c.s.begin(), c.s.end(), s) - c.s.begin());
         for (int n = direction > 0 ? start : start - 1; n >= 0 && n < static_cast<int>(c.p.size());
              n += direction) {
-            const double arc = direction * (c.s[n] - s), distance = (c.p[n] - corner).length() / h;
+            const double arc = direction * (c.s[n] - s), distance = (c.p[n] - corner.p).length() / h;
             if (arc > limit || arc > far + 1.5) break;
             if (distance < skip || distance > far) continue;
             used.push_back(c.p[n]);
@@ -131,26 +144,22 @@ Line fit_side(const Padded& c, double s, int direction, const Vec3& corner, doub
     return {};
 }
 
-struct RebuiltCorner {
-    double s = 0;
-    Vec3 p;
-    Line left, right;
-};
-
-/// Intersects the two fitted lines, refitting once round the corner found.
+/// Intersects the two fitted lines, refitting twice round the corner found.
 bool intersect(const Padded& c, double h, double room_left, double room_right, RebuiltCorner& out) {
     out.p = c.at(out.s);
     const Vec3 raw = out.p;
     for (int round = 0; round < 3; ++round) {
-        out.left = fit_side(c, out.s, -1, out.p, h, room_left);
-        out.right = fit_side(c, out.s, +1, out.p, h, room_right);
+        out.left = fit_side(c, out, -1, h, room_left);
+        out.right = fit_side(c, out, +1, h, room_right);
         if (!out.left.good || !out.right.good) return false;
         const Vec3 a = out.left.along, b = out.right.along;
         const double sine = a.x * b.z - a.z * b.x;
-        if (std::fabs(turn(a, b)) < threshold || std::fabs(sine) < 0.1) return false;
+        const double turned = turn(a, b);
+        if (std::fabs(turned) < threshold || std::fabs(sine) < 0.1) return false;
+        out.near = disturbed(turned);
         const Vec3 d = out.right.point - out.left.point;
         out.p = out.left.point + a * ((d.x * b.z - d.z * b.x) / sine);
-        if ((out.p - raw).length() > 2.0 * h) return false;
+        if ((out.p - raw).length() > 2.0 * out.near * h) return false;
     }
     return true;
 }
@@ -238,7 +247,7 @@ void rebuild_corners(ContourChain& chain, const Domain& domain) {
         ContourPoint q = chain.points[n];
         bool keep = true;
         for (const RebuiltCorner& c : corners) {
-            if (std::fabs(s - c.s) > 2 * near || (q.p - c.p).length() > near * h) continue;
+            if (std::fabs(s - c.s) > 2 * c.near || (q.p - c.p).length() > c.near * h) continue;
             if (!q.fixed) keep = settle(q.p, s, c, h) && keep;
             else if (std::fabs(c.p.x - q.p.x) < 0.3 * h) q.p.z = c.p.z;
         }
