@@ -227,4 +227,15 @@ SurfaceResponse respond(const Mechanism& mechanism, int material, const LocalArr
     return r;
 }
 
+std::vector<int> deposited_materials(const Mechanism& mechanism) {
+    std::vector<int> found;
+    for (const SurfaceChemistry& surface : mechanism.surfaces)
+        for (const SurfaceProcess& process : surface.processes)
+            if (const auto* deposition = std::get_if<Deposition>(&process))
+                if (deposition->film_material >= 0) found.push_back(deposition->film_material);
+    std::sort(found.begin(), found.end());
+    found.erase(std::unique(found.begin(), found.end()), found.end());
+    return found;
+}
+
 } // namespace rille::fluxes

@@ -126,4 +126,7 @@ struct SurfaceChemistry {
     std::vector<SurfaceProcess> processes;
 };
 
+/// Material ids of the films that the mechanism can build up, ascending, each once.
+std::vector<int> deposited_materials(const Mechanism&);
+
 } // namespace rille::fluxes
