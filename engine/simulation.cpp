@@ -1,7 +1,9 @@
 // SPDX-License-Identifier: Apache-2.0
 #include "engine/simulation.hpp"
 
+#include "engine/metrics.hpp"
 #include "engine/sources.hpp"
+#include "fluxes/surface_chemistry.hpp"
 #include "geometry/check.hpp"
 #include "geometry/nearest.hpp"
 #include "geometry/ray_caster.hpp"
@@ -237,11 +239,12 @@ double Simulation::distance_to_goal(const Surface& surface) const {
     const auto film = std::find_if(case_.films.begin(), case_.films.end(),
                                    [&](const geometry::Film& f) { return f.name == end.film; });
     RILLE_CHECK(film != case_.films.end(), "unknown film " + end.film);
-    const auto opening =
-        std::find_if(case_.mask.openings.begin(), case_.mask.openings.end(),
-                     [&](const geometry::Opening& o) { return o.name == end.at; });
-    RILLE_CHECK(opening != case_.mask.openings.end(), "unknown place " + end.at);
-    const auto floor = geometry::floor_of(case_.domain, surface, site_of(*opening));
+    const auto& openings = case_.mask.openings;
+    const auto opening = std::find_if(openings.begin(), openings.end(),
+                                      [&](const geometry::Opening& o) { return o.name == end.at; });
+    RILLE_CHECK(opening != openings.end(), "unknown place " + end.at);
+    const geometry::FeatureSite site = feature_sites(case_)[opening - openings.begin()];
+    const auto floor = geometry::floor_of(case_.domain, surface, site);
     if (!floor) return std::numeric_limits<double>::infinity();
     double z = floor->centre.value;
     if (end.kind == StepEnd::Kind::cleared)

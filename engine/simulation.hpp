@@ -3,6 +3,7 @@
 
 #include "engine/case.hpp"
 #include "engine/open_field.hpp"
+#include "engine/run_record.hpp"
 #include "fluxes/surface_step.hpp"
 #include "geometry/front.hpp"
 #include "geometry/topology.hpp"
@@ -14,15 +15,6 @@
 #include <vector>
 
 namespace rille::engine {
-
-/// How one recipe step ended.
-struct StepOutcome {
-    enum class Reason { time, reached, cleared, not_reached };
-    std::string name;
-    double start_s = 0;
-    double end_s = 0;
-    Reason reason = Reason::time;
-};
 
 /// Seconds of wall time by phase of the run.
 struct Timings {
@@ -52,6 +44,8 @@ class Simulation {
     double last_dt_s() const { return last_dt_s_; }
     std::size_t step_index() const { return step_index_; }
     const std::vector<StepOutcome>& outcomes() const { return outcomes_; }
+    /// False once a step ran into its limit before it reached what it was to reach.
+    bool all_reached() const { return all_reached_; }
     const geometry::Front& front() const { return front_; }
     const geometry::Surface& surface() const { return surface_; }
     const geometry::GrownFilms& films() const { return films_; }
@@ -84,7 +78,7 @@ class Simulation {
     double distance_to_goal(const geometry::Surface&) const;
     double step_end_time() const;
     Trial land_on_goal(Trial&& beyond, const fluxes::SurfaceStep&);
-    void end_step(StepOutcome::Reason);
+    void end_step(bool reached);
     void begin_step();
 
     const Case& case_;
@@ -102,6 +96,7 @@ class Simulation {
     double time_s_ = 0, last_dt_s_ = 0, step_start_s_ = 0;
     double start_distance_ = 0; ///< distance to the goal when the step began [nm]
     std::size_t step_index_ = 0;
+    bool all_reached_ = true;
     std::uint64_t refresh_ = 0;
     Health health_;
     Timings timings_;

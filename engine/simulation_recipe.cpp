@@ -56,41 +56,33 @@ void Simulation::step(double no_later_than_s) {
     double open_field_time = forever;
     if (by_open_field(end))
         open_field_time = time_s_ + open_field_.time_to(film_top(case_, end.film), recipe().plasma);
-    if (by_profile(end) && distance_to_goal(surface_) <= 0) {
-        end_step(end.kind == StepEnd::Kind::cleared ? StepOutcome::Reason::cleared
-                                                    : StepOutcome::Reason::reached);
-        return;
-    }
+    if (by_profile(end) && distance_to_goal(surface_) <= 0) return end_step(true);
     const double until = std::min({last, open_field_time, no_later_than_s});
     const double rounding = 1e-12 * std::max(1.0, until);
     if (until - time_s_ > rounding) {
         Trial trial = heun(until - time_s_);
-        bool met = false;
-        if (by_profile(end) && distance_to_goal(trial.surface) <= 0) {
-            trial = land_on_goal(std::move(trial), present_);
-            met = true;
-        }
+        const bool met = by_profile(end) && distance_to_goal(trial.surface) <= 0;
+        if (met) trial = land_on_goal(std::move(trial), present_);
         accept(std::move(trial), present_);
-        if (met) {
-            end_step(end.kind == StepEnd::Kind::cleared ? StepOutcome::Reason::cleared
-                                                        : StepOutcome::Reason::reached);
-            return;
-        }
+        if (met) return end_step(true);
     }
-    if (by_open_field(end) && time_s_ >= open_field_time - rounding)
-        end_step(StepOutcome::Reason::reached);
-    else if (time_s_ >= last - rounding)
-        end_step(by_profile(end) || by_open_field(end) ? StepOutcome::Reason::not_reached
-                                                       : StepOutcome::Reason::time);
+    if (by_open_field(end) && time_s_ >= open_field_time - rounding) end_step(true);
+    else if (time_s_ >= last - rounding) end_step(!by_profile(end) && !by_open_field(end));
 }
 
-void Simulation::end_step(StepOutcome::Reason reason) {
+void Simulation::end_step(bool reached) {
     const RecipeStep& step = recipe();
-    if (reason == StepOutcome::Reason::not_reached && step.must_end)
-        throw NumericsError("step " + step.name + " did not reach " + step.end.film + " at " +
-                            step.end.at + " within its limit of " +
-                            std::to_string(step.no_longer_than_s) + " s");
-    outcomes_.push_back({step.name, step_start_s_, time_s_, reason});
+    const bool timed = !by_profile(step.end) && !by_open_field(step.end);
+    const std::string goal =
+        timed ? "time"
+              : (step.end.kind == StepEnd::Kind::cleared ? "cleared down to " : "reached ") +
+                    step.end.film + " at " + step.end.at;
+    if (!reached && step.must_end)
+        throw NumericsError("step " + step.name + ": " + step.end.film + " was not " + goal +
+                            " within its limit of " + std::to_string(step.no_longer_than_s) + " s");
+    all_reached_ = all_reached_ && reached;
+    outcomes_.push_back(
+        {step.name, step_start_s_, time_s_, reached ? goal : "time limit; not " + goal});
     duration_s_[step.name] = time_s_ - step_start_s_;
     ++step_index_;
     present_valid_ = false;
