@@ -64,32 +64,56 @@ void connect_within_row(Band& band, int begin, int end) {
     }
 }
 
-/// |phi| of a cell by the first-order upwind eikonal equation from its neighbours on the same side;
-/// exact for planes once all upwind neighbours are known.
-double eikonal(const Band& band, const std::vector<double>& phi, std::size_t c) {
-    const double h = band.domain.spacing, sign = phi[c] < 0 ? -1 : 1;
-    double a[3];
+/// One axis of the upwind eikonal equation: slope along it = weight (u - at) / h.
+struct UpwindTerm {
+    double least = 0; ///< |phi| of the upwind neighbour
+    double at = 0, weight = 1;
+};
+
+/// The upwind neighbour of c along an axis, with the second one where it continues the descent.
+bool upwind_term(const Band& band, std::size_t c, int axis, double unknown, UpwindTerm& term) {
+    const double sign = band.phi[c] < 0 ? -1 : 1;
+    int best = -1;
+    for (int side = 2 * axis; side < 2 * axis + 2; ++side) {
+        const int m = band.neighbour[c][side];
+        if (m < 0 || m == static_cast<int>(c)) continue;
+        if (best < 0 || sign * band.phi[m] < sign * band.phi[band.neighbour[c][best]]) best = side;
+    }
+    if (best < 0) return false;
+    const int first = band.neighbour[c][best], second = band.neighbour[first][best];
+    const double u = std::max(0.0, sign * band.phi[first]);
+    if (u >= unknown) return false;
+    term = {u, u, 1};
+    if (second < 0 || second == first || sign * band.phi[second] > u) return true;
+    term.at = (4 * sign * band.phi[first] - sign * band.phi[second]) / 3;
+    term.weight = 1.5;
+    return true;
+}
+
+/// |phi| of a cell by the second-order upwind eikonal equation (fast marching's differences) from its
+/// neighbours on the same side; exact for planes once all upwind neighbours are known.
+double eikonal(const Band& band, std::size_t c, double unknown) {
+    const double h = band.domain.spacing;
+    UpwindTerm terms[3];
     int n = 0;
     for (int axis = 0; axis < 3; ++axis) {
-        double least = std::numeric_limits<double>::infinity();
-        for (int side = 2 * axis; side < 2 * axis + 2; ++side) {
-            const int m = band.neighbour[c][side];
-            if (m >= 0 && m != static_cast<int>(c)) least = std::min(least, sign * phi[m]);
-        }
-        if (!std::isfinite(least)) continue;
+        UpwindTerm term;
+        if (!upwind_term(band, c, axis, unknown, term)) continue;
         int at = n++; // kept in rising order
-        for (; at > 0 && a[at - 1] > least; --at) a[at] = a[at - 1];
-        a[at] = std::max(least, 0.0);
+        for (; at > 0 && terms[at - 1].least > term.least; --at) terms[at] = terms[at - 1];
+        terms[at] = term;
     }
-    double u = n > 0 ? a[0] + h : std::fabs(phi[c]);
-    for (int used = 2; used <= n && u > a[used - 1]; ++used) {
-        double sum = 0, square = -h * h;
-        for (int m = 0; m < used; ++m) sum += a[m], square += a[m] * a[m];
-        const double root = sum * sum - used * square;
+    double u = unknown, square = 0, linear = 0, constant = -h * h;
+    for (int m = 0; m < n && u > terms[m].least; ++m) {
+        const double w = terms[m].weight * terms[m].weight;
+        square += w;
+        linear += w * terms[m].at;
+        constant += w * terms[m].at * terms[m].at;
+        const double root = linear * linear - square * constant;
         if (root < 0) break;
-        u = (sum + std::sqrt(root)) / used;
+        u = (linear + std::sqrt(root)) / square;
     }
-    return u;
+    return std::max(u, n > 0 ? terms[0].least : u);
 }
 
 /// Missing neighbours of cells within the half-width, sorted, with the sign of the cell they touch.
@@ -147,7 +171,7 @@ void add_layer(Band& band, double reach) {
     for (int round = 0; round < 4; ++round) {
         for_ranges(added.size(), [&](std::size_t begin, std::size_t end) {
             for (std::size_t a = begin; a < end; ++a)
-                value[a] = std::min(unknown, eikonal(grown, grown.phi, added[a]));
+                value[a] = eikonal(grown, added[a], unknown);
         });
         for (std::size_t a = 0; a < added.size(); ++a)
             grown.phi[added[a]] = std::copysign(value[a], grown.phi[added[a]]);

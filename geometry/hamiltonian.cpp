@@ -24,10 +24,13 @@ void slopes_along(const Band& band, const double* phi, std::size_t cell, double 
     const int left = band.neighbour[c][2 * axis], right = band.neighbour[c][2 * axis + 1];
     const double here = phi[c];
     if (left < 0 || right < 0) {
-        double slope = 0;
-        if (left >= 0) slope = here - phi[left];
-        if (right >= 0) slope = phi[right] - here;
-        out.minus[axis] = out.plus[axis] = slope * inverse_spacing;
+        // The edge of the band: second-order differences from the side that is there.
+        const int side = left < 0 ? 2 * axis + 1 : 2 * axis, next = band.neighbour[c][side];
+        if (next < 0) return;
+        const int next2 = band.neighbour[next][side];
+        const double near = phi[next] - here, bend = next2 < 0 ? 0 : phi[next2] - phi[next] - near;
+        const double slope = (near - 0.5 * bend) * (left < 0 ? inverse_spacing : -inverse_spacing);
+        out.minus[axis] = out.plus[axis] = slope;
         return;
     }
     // Beyond a mirror side the second neighbour is the first one on the other side.
