@@ -251,9 +251,13 @@ void Advance::find_layers(LayeredCell& at, Speed& most) {
     at.unseen = finder_.unseen_sides(c, phi, e, foot, element_tilt_[e].angle);
     at.beside = 0;
     for (int side = 0; side < 6; ++side) {
-        if (!(at.resting >> side & 1)) continue;
+        const int next = band_.neighbour[c][side];
+        if (next < 0 || (at.unseen >> side & 1)) continue;
+        if (!(at.resting >> side & 1) &&
+            !finder_.pinned(next, phi, e, element_tilt_[e].angle))
+            continue;
         const double n = (&surface_.normal[e].x)[side / 2] * (side & 1 ? h_ : -h_);
-        const double there = phi[band_.neighbour[c][side]];
+        const double there = phi[next];
         if (there > 0 && there < phi[c] + n - 0.05 * h_) at.beside |= 1u << side;
     }
     s = special_slopes(phi, at);
