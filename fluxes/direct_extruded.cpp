@@ -1,7 +1,7 @@
 // SPDX-License-Identifier: Apache-2.0
 #include "fluxes/arc_average.hpp"
 #include "fluxes/direct_ions.hpp"
-#include "fluxes/sky.hpp"
+#include "fluxes/open_sky.hpp"
 
 #include <tbb/blocked_range.h>
 #include <tbb/parallel_for.h>
@@ -106,7 +106,7 @@ class ExtrudedGather {
 
     const geometry::Surface& surface_;
     const IonTables& tables_;
-    Sky sky_;
+    OpenSky sky_;
     ArcAverage average_;
     std::vector<geometry::Vec3> normal_;
     std::vector<std::vector<Visible>> seen_;

@@ -2,7 +2,7 @@
 #include "fluxes/arc_average.hpp"
 #include "fluxes/direct_ions.hpp"
 #include "fluxes/exchange.hpp"
-#include "fluxes/sobol.hpp"
+#include "fluxes/sampling.hpp"
 
 #include <tbb/blocked_range.h>
 #include <tbb/parallel_for.h>
@@ -14,6 +14,8 @@ namespace rille::fluxes {
 namespace {
 
 using geometry::Hit;
+
+constexpr std::uint64_t stream = 0x64697265637400ULL; ///< keeps keys apart from other samplings
 
 /// An angle law times the received flux is needed at (directions x angles) per element: linear in a
 /// table over the cosine, whose error (1e-5) is far below the sampling error.
@@ -88,15 +90,13 @@ class FullGather {
         const double flat = std::hypot(mean.x, mean.y);
         const double hx = flat > 1e-9 ? mean.x / flat : 1.0, hy = flat > 1e-9 ? mean.y / flat : 0.0;
         const double share = source.flux / (per_batch_ * batches);
-        const std::uint64_t key = mixed(mixed(options_.seed, options_.refresh),
-                                        mixed(std::uint64_t(e), std::uint64_t(ion)));
         std::vector<Arrival> arrivals;
         for (int b = 0; b < batches; ++b) {
-            const Sobol sobol(mixed(key, b));
+            const ScrambledPoints points(
+                stream_key(options_.seed, stream, options_.refresh, e, ion, b));
             for (int k = 0; k < per_batch_; ++k) {
-                const auto i = static_cast<std::uint32_t>(k);
-                const IonSample ion_sample = source.distribution.sample(
-                    {sobol(i, 0), sobol(i, 1), sobol(i, 2), sobol(i, 3)});
+                const IonSample ion_sample =
+                    source.distribution.sample(points.four(static_cast<std::uint32_t>(k)));
                 const Vec3 from = -ion_sample.direction;
                 const double facing = from.dot(own);
                 const Vec3 start = facing > 0

@@ -4,293 +4,177 @@
 #include "geometry/check.hpp"
 
 #include <algorithm>
+#include <array>
 #include <cmath>
 
 namespace rille::fluxes {
 namespace {
 
 constexpr double pi = 3.14159265358979323846;
-
-/// Angle from the vertical of the direction (x, z), moved by whole turns next to `near`.
-double angle_near(double x, double z, double near) {
-    const double angle = std::atan2(x, z);
-    return angle + 2 * pi * std::round((near - angle) / (2 * pi));
-}
-
-/// Part of the sky of `plane` over [low, high] of alpha + beta tan(phi) where that is positive.
-double positive_part(const InPlane& plane, double alpha, double beta, double low, double high) {
-    const auto sign = [&](double phi) { return alpha * std::cos(phi) + beta * std::sin(phi); };
-    const bool at_low = sign(low) > 0, at_high = sign(high) > 0;
-    if (!at_low && !at_high) return 0.0;
-    if (at_low != at_high) {
-        const double root =
-            std::clamp(std::atan2(beta < 0 ? alpha : -alpha, std::fabs(beta)), low, high);
-        (at_low ? high : low) = root;
-    }
-    return alpha * (plane.share_below(high) - plane.share_below(low)) +
-           beta * (plane.moment_below(high) - plane.moment_below(low));
-}
+constexpr int block_length = 16;
 
 } // namespace
 
-Sky::Sky(const geometry::Domain& domain, const geometry::Surface& surface) {
-    RILLE_CHECK(domain.extruded(), "the sky by strings is two-dimensional");
-    period_ = domain.width_x();
-    mirror_ = domain.sides == geometry::Sides::mirror;
-    x_min_ = domain.x_min();
-    length_ = surface.area;
-    unroll(domain, surface);
-    unwrap_normals();
-    const std::size_t n = point_.size();
-    std::vector<double> start(n, 0.0);
-    for (std::size_t i = 1; i < n; ++i) start[i] = normal_[i - 1] - 0.5 * pi;
-    left_ = pull(point_, start);
-    reflected_.resize(n);
-    for (std::size_t i = 0; i < n; ++i)
-        reflected_[i] = {-point_[n - 1 - i].x, point_[n - 1 - i].z};
-    for (std::size_t i = 1; i < n; ++i) start[i] = -(normal_[n - 1 - i] + 0.5 * pi);
-    right_ = pull(reflected_, start);
-    find_floating(domain, surface);
-}
+/// Follows vertices seen from one point and keeps the direction of the largest unwrapped angle,
+/// where angles are measured from +z towards +x. No trigonometry on the way: `half_turns_` is how
+/// many whole half turns the current vertex lies behind the best direction, which changes by one
+/// whenever the path crosses the line through the best direction.
+class Sky::Walk {
+public:
+    /// scale: 1, or -1 to look at the mirror image in x.
+    Walk(const Point& eye, double scale, const Point& start, double start_angle)
+        : eye_(eye), scale_(scale), best_{start.x + 0.0, start.z}, current_(best_),
+          turns_(static_cast<int>(
+              std::lround((start_angle - std::atan2(best_.x, best_.z)) / (2 * pi)))) {}
 
-/// Chain 0 from its highest vertex over one full period of the unrolled surface; positions made
-/// continuous by whole periods, mirror images by reflection.
-void Sky::unroll(const geometry::Domain&, const geometry::Surface& surface) {
+    double angle() const { return std::atan2(best_.x, best_.z) + 2 * pi * turns_; }
+
+    /// Vertices first, first + step, ... up to but without last, at x -> offset + factor x.
+    void follow(const Sky& sky, int first, int last, int step, double offset, double factor) {
+        const double a = scale_ * (offset - eye_.x), f = scale_ * factor;
+        int i = first;
+        while (i != last) {
+            const int block = i / block_length;
+            const bool at_edge =
+                step > 0 ? i % block_length == 0 : i % block_length == block_length - 1;
+            if (at_edge && (last - i) * step >= block_length && half_turns_ == 0 &&
+                behind(sky.boxes_[block], a, f)) {
+                i += step * (block_length - 1);
+                const Point& p = sky.path_[i];
+                current_ = {a + f * p.x, p.z - eye_.z};
+            } else {
+                const Point& p = sky.path_[i];
+                go_to({a + f * p.x, p.z - eye_.z});
+            }
+            i += step;
+        }
+    }
+
+private:
+    /// > 0 if q lies ahead of p by less than half a turn.
+    static double cross(const Point& p, const Point& q) { return p.z * q.x - p.x * q.z; }
+
+    /// Whether the box lies wholly within the half turn behind the best direction.
+    bool behind(const Box& box, double a, double f) const {
+        const double xa = a + f * box.x0, xb = a + f * box.x1;
+        const double x = best_.z > 0 ? std::max(xa, xb) : std::min(xa, xb);
+        const double z = (best_.x > 0 ? box.z0 : box.z1) - eye_.z;
+        return best_.z * x - best_.x * z <= 0;
+    }
+
+    void go_to(const Point& to) {
+        if (to.x == 0 && to.z == 0)
+            return; // the eye itself
+        const double now = cross(best_, to);
+        const bool even = half_turns_ % 2 == 0;
+        if (even ? now > 0 : now < 0) {
+            const double before = cross(best_, current_);
+            const double t = before / (before - now);
+            const bool forward = best_.x * (current_.x + t * (to.x - current_.x)) +
+                                     best_.z * (current_.z + t * (to.z - current_.z)) >
+                                 0;
+            half_turns_ += even == forward ? -1 : 1;
+            if (half_turns_ < 0) {
+                if (best_.x >= 0 && to.x < 0)
+                    ++turns_;
+                best_ = {to.x + 0.0, to.z}; // no negative zero: it would turn pi into -pi
+                half_turns_ = 0;
+            }
+        }
+        current_ = to;
+    }
+
+    Point eye_;
+    double scale_;
+    Point best_, current_;
+    int half_turns_ = 0;
+    int turns_ = 0; ///< whole turns in the unwrapped angle of best_
+};
+
+Sky::Sky(const geometry::Domain& domain, const geometry::Surface& surface)
+    : sides_(domain.sides), x_min_(domain.x_min()), width_(domain.width_x()),
+      position_(surface.size(), -1) {
+    RILLE_CHECK(domain.extruded(), "sky intervals exist in extruded symmetry only");
+    const int n = static_cast<int>(surface.size());
     int first = -1;
-    const int count = static_cast<int>(surface.size());
-    for (int e = 0; e < count && first < 0; ++e)
-        if (surface.chain[e] == 0 && (!mirror_ || surface.previous[e] < 0)) first = e;
-    RILLE_CHECK(first >= 0, "no part of the surface is open to the source");
-    std::vector<int> order;
-    for (int e = first; e >= 0; e = surface.next[e]) {
-        if (!order.empty() && e == first) break;
-        RILLE_CHECK(static_cast<int>(order.size()) < count, "the open surface never closes");
-        order.push_back(e);
+    for (int e = 0; e < n && (first < 0 || surface.previous[first] >= 0); ++e)
+        if (surface.chain[e] == 0 && (first < 0 || surface.previous[e] < 0))
+            first = e;
+    double shift = 0;
+    for (int e = first; e >= 0 && position_[e] < 0; e = surface.next[e]) {
+        const auto a = surface.vertices[surface.corners[e][0]];
+        const auto b = surface.vertices[surface.corners[e][1]];
+        if (path_.empty())
+            path_.push_back({a.x, a.z});
+        else // a chain that leaves the period re-enters on the other side
+            shift = width_ * std::round((path_.back().x - a.x) / width_);
+        position_[e] = static_cast<int>(path_.size()) - 1;
+        path_.push_back({b.x + shift, b.z});
     }
-    const int n = static_cast<int>(order.size());
-    std::vector<Point> base;
-    for (int e : order) {
-        const geometry::Vec3 a = surface.vertices[surface.corners[e][0]];
-        const geometry::Vec3 b = surface.vertices[surface.corners[e][1]];
-        double from = a.x, to = b.x;
-        if (!mirror_) {
-            if (!base.empty()) from += period_ * std::round((base.back().x - from) / period_);
-            to += period_ * std::round((from - to) / period_);
+    for (std::size_t i = 0; i < path_.size(); i += block_length) {
+        Box box{path_[i].x, path_[i].x, path_[i].z, path_[i].z};
+        for (std::size_t j = i; j < std::min(path_.size(), i + block_length); ++j) {
+            box.x0 = std::min(box.x0, path_[j].x), box.x1 = std::max(box.x1, path_[j].x);
+            box.z0 = std::min(box.z0, path_[j].z), box.z1 = std::max(box.z1, path_[j].z);
         }
-        if (base.empty()) base.push_back({from, a.z});
-        base.push_back({to, b.z});
-    }
-    const double span = base.back().x - base.front().x;
-    RILLE_CHECK(std::fabs(span - period_) < 1e-6 * period_,
-                "the open surface does not span the period");
-    int top = 0;
-    for (int i = 1; i < n; ++i)
-        if (base[i].z > base[top].z) top = i;
-    if (mirror_ && base[n].z > base[top].z) top = n;
-    const auto image = [&](int j) {
-        const int m = static_cast<int>(std::floor(double(j) / n)), r = j - m * n;
-        if (!mirror_) return Point{base[r].x + m * period_, base[r].z};
-        if (m % 2 == 0) return Point{base[r].x + m * period_, base[r].z};
-        return Point{2 * (x_min_ + period_) + (m - 1) * period_ - base[n - r].x, base[n - r].z};
-    };
-    const int total = mirror_ ? 2 * n : n;
-    for (int j = top; j <= top + total; ++j) point_.push_back(image(j));
-    position_.assign(count, -1);
-    for (int i = 0; i < n; ++i) position_[order[i]] = (i >= top ? i : i + total) - top;
-}
-
-void Sky::unwrap_normals() {
-    normal_.resize(point_.size() - 1);
-    for (std::size_t i = 0; i < normal_.size(); ++i) {
-        const double x = point_[i + 1].x - point_[i].x, z = point_[i + 1].z - point_[i].z;
-        normal_[i] = angle_near(-z, x, i == 0 ? 0.0 : normal_[i - 1]);
+        boxes_.push_back(box);
     }
 }
 
-Sky::Strings Sky::pull(const std::vector<Point>& point, const std::vector<double>& start_angle) {
-    const int n = static_cast<int>(point.size());
-    Strings strings{std::vector<int>(n, -1), std::vector<double>(n, -0.5 * pi)};
-    for (int i = 1; i < n; ++i) {
-        int vertex = i - 1;
-        double angle = start_angle[i];
-        while (strings.parent[vertex] >= 0 && strings.angle[vertex] > angle) {
-            vertex = strings.parent[vertex];
-            angle = angle_near(point[vertex].x - point[i].x, point[vertex].z - point[i].z, angle);
-        }
-        strings.parent[i] = vertex;
-        strings.angle[i] = angle;
+double Sky::horizon(int element, double t, bool rightwards) const {
+    const int k = position_[element], last = static_cast<int>(path_.size()) - 1;
+    const Point a = path_[k], b = path_[k + 1];
+    const Point eye{a.x + t * (b.x - a.x), a.z + t * (b.z - a.z)};
+    const Point along{b.x - a.x, b.z - a.z};
+    const double normal = std::atan2(-along.z, along.x); // of the left-hand normal
+    const bool mirror = sides_ == geometry::Sides::mirror;
+    if (!rightwards) {
+        Walk walk(eye, 1, {-along.x, -along.z}, normal - pi / 2);
+        walk.follow(*this, k, -1, -1, 0, 1);
+        if (mirror)
+            walk.follow(*this, 0, last + 1, 1, 2 * x_min_, -1);
+        else
+            walk.follow(*this, last - 1, k, -1, -width_, 1);
+        return walk.angle();
     }
-    return strings;
+    Walk walk(eye, -1, {-along.x, along.z}, -normal - pi / 2);
+    walk.follow(*this, k + 1, last + 1, 1, 0, 1);
+    if (mirror)
+        walk.follow(*this, last, -1, -1, 2 * (x_min_ + width_), -1);
+    else
+        walk.follow(*this, 1, k + 1, 1, width_, 1);
+    return -walk.angle();
 }
 
-/// Angle of the tangent from a point to the surface that ends at `vertex`, seen at `angle`.
-double Sky::tangent_angle(const std::vector<Point>& point, const Strings& strings,
-                          const Point& from, int vertex, double angle) {
-    while (strings.parent[vertex] >= 0 && strings.angle[vertex] > angle) {
-        vertex = strings.parent[vertex];
-        angle = angle_near(point[vertex].x - from.x, point[vertex].z - from.z, angle);
-    }
-    return angle;
+SkyInterval Sky::at(int element, double t) const {
+    if (!covers(element))
+        return {};
+    SkyInterval sky;
+    sky.left = std::max(horizon(element, t, false), -pi / 2);
+    sky.right = std::min(horizon(element, t, true), pi / 2);
+    if (sky.dark())
+        return {};
+    return sky;
 }
 
-double Sky::flux(const InPlane& plane, int element) const {
-    if (!lit_[element]) return 0.0;
-    if (floating_pieces()) return flux_by_points(plane, element);
-    return flux_by_strings(plane, position_[element]) / length_[element];
-}
-
-/// The rays of in-plane angle phi that land on a segment fill the gap between the left string and
-/// the right string, measured across the rays. Between the angles at which the strings leave one
-/// vertex for the next, that gap is linear in tan(phi), which the tables integrate exactly.
-double Sky::flux_by_strings(const InPlane& plane, int position) const {
-    const int last = static_cast<int>(point_.size()) - 1;
-    std::vector<int> left = {position}, right = {position + 1};
-    std::vector<double> left_from, right_to; // angle at which each vertex hands over to the next
-    for (int v = position; v >= 0; v = left_.parent[v]) {
-        const double before = left_from.empty() ? HUGE_VAL : left_from.back();
-        left_from.push_back(std::min(before, left_.parent[v] < 0 ? -HUGE_VAL : left_.angle[v]));
-        if (left_.parent[v] >= 0) left.push_back(left_.parent[v]);
-        if (left_from.back() < -0.5 * pi) break;
-    }
-    for (int v = last - (position + 1); v >= 0; v = right_.parent[v]) {
-        const double before = right_to.empty() ? -HUGE_VAL : right_to.back();
-        right_to.push_back(std::max(before, right_.parent[v] < 0 ? HUGE_VAL : -right_.angle[v]));
-        if (right_.parent[v] >= 0) right.push_back(last - right_.parent[v]);
-        if (right_to.back() > 0.5 * pi) break;
-    }
-    double sum = 0, phi = -0.5 * pi;
-    std::size_t l = left_from.size() - 1, r = 0;
-    while (phi < 0.5 * pi) {
-        while (l > 0 && left_from[l - 1] <= phi) --l;
-        while (r + 1 < right_to.size() && right_to[r] <= phi) ++r;
-        double to = 0.5 * pi;
-        if (l > 0) to = std::min(to, left_from[l - 1]);
-        if (r + 1 < right_to.size()) to = std::min(to, right_to[r]);
-        const Point &a = point_[left[l]], &b = point_[right[r]];
-        sum += positive_part(plane, b.x - a.x, a.z - b.z, phi, to);
-        phi = to;
+double Sky::cosine_flux(int element) const {
+    if (!covers(element))
+        return 0;
+    const int k = position_[element];
+    const double psi = std::atan2(path_[k].z - path_[k + 1].z, path_[k + 1].x - path_[k].x);
+    // Gauss-Legendre, four points: the flux is smooth along a segment but for kinks where the
+    // vertex on the horizon changes.
+    constexpr std::array<double, 4> node{0.06943184420297371, 0.33000947820757187,
+                                         0.66999052179242813, 0.93056815579702629};
+    constexpr std::array<double, 4> weight{0.17392742256872693, 0.32607257743127307,
+                                           0.32607257743127307, 0.17392742256872693};
+    double sum = 0;
+    for (int i = 0; i < 4; ++i) {
+        const SkyInterval sky = at(element, node[i]);
+        if (!sky.dark())
+            sum += weight[i] * 0.5 * (std::sin(sky.right - psi) - std::sin(sky.left - psi));
     }
     return sum;
-}
-
-std::vector<Visible> Sky::visible(int element, double part) const {
-    if (!lit_[element]) return {};
-    if (floating_pieces()) return visible_by_segments(element, part);
-    const int i = position_[element], last = static_cast<int>(point_.size()) - 1;
-    const Point &a = point_[i], &b = point_[i + 1];
-    const Point here{a.x + part * (b.x - a.x), a.z + part * (b.z - a.z)};
-    Visible seen{-0.5 * pi, 0.5 * pi};
-    if (i > 0) {
-        const Point& p = point_[i - 1];
-        const double angle = angle_near(p.x - here.x, p.z - here.z, normal_[i] - 0.5 * pi);
-        seen.low = std::max(seen.low, tangent_angle(point_, left_, here, i - 1, angle));
-    }
-    if (i + 2 <= last) {
-        const Point& p = point_[i + 2];
-        const double angle = angle_near(here.x - p.x, p.z - here.z, -(normal_[i] + 0.5 * pi));
-        const Point flipped{-here.x, here.z};
-        seen.high = std::min(seen.high, -tangent_angle(reflected_, right_, flipped,
-                                                       last - (i + 2), angle));
-    }
-    if (!(seen.low < seen.high)) return {};
-    return {seen};
-}
-
-/// Chains other than 0: clockwise around solid = a piece of solid; it floats in the gas if it lies
-/// above chain 0 rather than in a closed void.
-void Sky::find_floating(const geometry::Domain&, const geometry::Surface& surface) {
-    const int count = static_cast<int>(surface.size());
-    lit_.assign(count, 0);
-    int chains = 0;
-    for (int e = 0; e < count; ++e) {
-        const auto& c = surface.corners[e];
-        segment_.push_back({{surface.vertices[c[0]].x, surface.vertices[c[0]].z},
-                            {surface.vertices[c[1]].x, surface.vertices[c[1]].z}});
-        if (!mirror_) {
-            double& to = segment_.back().b.x;
-            to += period_ * std::round((segment_.back().a.x - to) / period_);
-        }
-        lit_[e] = surface.chain[e] == 0;
-        chains = std::max(chains, surface.chain[e] + 1);
-    }
-    for (int chain = 1; chain < chains; ++chain) {
-        int member = -1;
-        for (int e = 0; e < count && member < 0; ++e)
-            if (surface.chain[e] == chain) member = e;
-        if (member < 0) continue;
-        // Straight up from a point of the piece: an even number of crossings of chain 0 means that
-        // it lies on the gas side of it. (What a floating piece encloses is hidden by the piece.)
-        const Point from{0.5 * (segment_[member].a.x + segment_[member].b.x),
-                         0.5 * (segment_[member].a.z + segment_[member].b.z)};
-        int crossings = 0;
-        for (int e = 0; e < count; ++e) {
-            if (surface.chain[e] != 0) continue;
-            for (int k = -1; k <= 1; ++k) {
-                const double ax = segment_[e].a.x + k * period_, bx = segment_[e].b.x + k * period_;
-                if (mirror_ && k != 0) continue;
-                if ((ax <= from.x) == (bx <= from.x)) continue;
-                const double t = (from.x - ax) / (bx - ax);
-                if (segment_[e].a.z + t * (segment_[e].b.z - segment_[e].a.z) > from.z) ++crossings;
-            }
-        }
-        if (crossings % 2 != 0) continue;
-        for (int e = 0; e < count; ++e)
-            if (surface.chain[e] == chain) {
-                lit_[e] = 1;
-                floating_.push_back(e);
-            }
-    }
-}
-
-std::vector<Visible> Sky::visible_by_segments(int element, double part) const {
-    constexpr int images = 4;
-    const Segment& own = segment_[element];
-    const Point here{own.a.x + part * (own.b.x - own.a.x), own.a.z + part * (own.b.z - own.a.z)};
-    std::vector<Visible> hidden;
-    const auto hide = [&](Point a, Point b) {
-        double from = std::atan2(a.x - here.x, a.z - here.z);
-        double to = from + std::remainder(std::atan2(b.x - here.x, b.z - here.z) - from, 2 * pi);
-        if (from > to) std::swap(from, to);
-        hidden.push_back({from, to});
-        if (from < -pi) hidden.push_back({from + 2 * pi, to + 2 * pi});
-        if (to > pi) hidden.push_back({from - 2 * pi, to - 2 * pi});
-    };
-    for (std::size_t e = 0; e < segment_.size(); ++e) {
-        if (!lit_[e]) continue;
-        const Segment& s = segment_[e];
-        for (int k = -images; k <= images; ++k) {
-            if (k == 0 && static_cast<int>(e) == element) continue;
-            const double shift = k * period_;
-            if (!mirror_ || k % 2 == 0) {
-                hide({s.a.x + shift, s.a.z}, {s.b.x + shift, s.b.z});
-            } else {
-                const double centre = 2 * (x_min_ + period_) + shift - period_;
-                hide({centre - s.a.x, s.a.z}, {centre - s.b.x, s.b.z});
-            }
-        }
-    }
-    std::sort(hidden.begin(), hidden.end(), [](const Visible& a, const Visible& b) {
-        return a.low != b.low ? a.low < b.low : a.high < b.high;
-    });
-    std::vector<Visible> seen;
-    double from = -0.5 * pi;
-    for (const Visible& h : hidden) {
-        if (h.low > from && from < 0.5 * pi) seen.push_back({from, std::min(h.low, 0.5 * pi)});
-        from = std::max(from, h.high);
-    }
-    if (from < 0.5 * pi) seen.push_back({from, 0.5 * pi});
-    return seen;
-}
-
-double Sky::flux_by_points(const InPlane& plane, int element) const {
-    constexpr int points = 8;
-    const Segment& own = segment_[element];
-    const double x = own.b.x - own.a.x, z = own.b.z - own.a.z;
-    double sum = 0;
-    for (int i = 0; i < points; ++i)
-        for (const Visible& v : visible_by_segments(element, (i + 0.5) / points))
-            sum += positive_part(plane, x, -z, v.low, v.high) / points;
-    return sum / length_[element];
 }
 
 } // namespace rille::fluxes

@@ -1,7 +1,6 @@
 // SPDX-License-Identifier: Apache-2.0
 #pragma once
 
-#include "fluxes/in_plane.hpp"
 #include "geometry/domain.hpp"
 #include "geometry/surface.hpp"
 
@@ -9,75 +8,48 @@
 
 namespace rille::fluxes {
 
-/// Interval of in-plane angles [rad] from which a point is seen; empty if low >= high.
-struct Visible {
-    double low = 0, high = 0;
+/// In-plane angles from +z [rad], positive towards +x, between which a point sees the open sky:
+/// -pi/2 <= left < right <= pi/2, or dark.
+struct SkyInterval {
+    double left = 0;
+    double right = 0;
+    bool dark() const { return !(left < right); }
 };
 
-/// What every element of an extruded surface sees of the sky, exactly, periods to either side
-/// included.
-///
-/// Over the part of the surface that is open to the source the gas is simply connected, so the sky
-/// seen from a point is one interval, bounded by the tangent to the surface walked to the left and
-/// the tangent to the surface walked to the right. The tangent points are found with taut strings:
-/// the string from a vertex runs over the tangent vertex and on along that vertex's own string, so
-/// one walk gives all of them (the funnel of shortest paths in a polygon). Walks start at the
-/// highest vertex: nothing beyond it can hide anything. Angles are unwrapped along the surface,
-/// which handles overhangs and spirals.
-///
-/// Pieces of solid that float in the gas break that picture; then the sky is found per point by
-/// taking away the interval that each segment hides (slower, exact per point).
+/// Exact visibility of the sky from points of an extruded surface, over sides that continue the
+/// period without end. The gas above chain 0 is simply connected, so the visible sky of a point is
+/// one interval: left is the largest angle, unwrapped along the way, of the vertices met walking
+/// the chain leftwards, right the smallest of those met walking rightwards. One period each way
+/// decides, for a vertex above the point only sinks towards the horizon from image to image. Solid
+/// pieces that float free of chain 0 cast no shadow here.
 class Sky {
-  public:
+public:
     Sky(const geometry::Domain&, const geometry::Surface&);
 
-    /// Flux through element e per length, relative to the flux through the wafer plane, of an
-    /// in-plane distribution. Integrated over the segment, so the sum over elements of flux times
-    /// length is the period, to round-off (with floating pieces: to the quadrature along segments).
-    double flux(const InPlane&, int element) const;
+    /// Whether the element belongs to the chain that is open to the source.
+    bool covers(int element) const { return position_[element] >= 0; }
+    /// Sky of the point a + t (b - a) of element (a, b), t in [0, 1]; dark where !covers(element).
+    SkyInterval at(int element, double t) const;
+    /// Mean over the element of the cosine-law flux from the visible sky, relative to the open
+    /// flux: (sin(right - psi) - sin(left - psi)) / 2, psi the element's normal; 0 where not
+    /// covered.
+    double cosine_flux(int element) const;
 
-    /// Intervals seen from the point at `part` in [0, 1] of element e. What the element itself hides
-    /// is left out: it depends on the normal, which the caller may turn.
-    std::vector<Visible> visible(int element, double part) const;
-
-    bool floating_pieces() const { return !floating_.empty(); }
-
-  private:
+private:
     struct Point {
         double x = 0, z = 0;
     };
-    /// Taut strings towards one side: parent vertex and the angle at which it is seen.
-    struct Strings {
-        std::vector<int> parent;
-        std::vector<double> angle;
+    struct Box {
+        double x0 = 0, x1 = 0, z0 = 0, z1 = 0;
     };
-    /// A segment of any chain in the base period.
-    struct Segment {
-        Point a, b;
-    };
+    class Walk;
+    double horizon(int element, double t, bool rightwards) const;
 
-    void unroll(const geometry::Domain&, const geometry::Surface&);
-    void unwrap_normals();
-    void find_floating(const geometry::Domain&, const geometry::Surface&);
-    static Strings pull(const std::vector<Point>&, const std::vector<double>& start_angle);
-    static double tangent_angle(const std::vector<Point>&, const Strings&, const Point& from,
-                                int vertex, double angle);
-    double flux_by_strings(const InPlane&, int position) const;
-    double flux_by_points(const InPlane&, int element) const;
-    std::vector<Visible> visible_by_segments(int element, double part) const;
-
-    std::vector<Point> point_;     ///< unrolled over one period (mirror: two) from the highest
-    std::vector<double> normal_;   ///< per unrolled segment, unwrapped [rad]
-    std::vector<int> position_;    ///< element -> unrolled segment, or -1
-    Strings left_, right_;         ///< right_: of the surface reflected in x and reversed
-    std::vector<Point> reflected_;
-    std::vector<double> length_;   ///< per element
-    std::vector<Segment> segment_; ///< per element, for floating pieces
-    std::vector<int> floating_;    ///< elements of floating pieces
-    std::vector<char> lit_;        ///< per element: open to the sky or floating in the gas
-    double period_ = 0;
-    bool mirror_ = false;
-    double x_min_ = 0;
+    geometry::Sides sides_;
+    double x_min_ = 0, width_ = 0;
+    std::vector<int> position_; ///< of the element along the chain, -1 = not on it
+    std::vector<Point> path_;   ///< vertices along the chain, unwrapped; one more than elements
+    std::vector<Box> boxes_;    ///< of every block_length consecutive vertices
 };
 
 } // namespace rille::fluxes

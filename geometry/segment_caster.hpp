@@ -1,0 +1,68 @@
+// SPDX-License-Identifier: Apache-2.0
+#pragma once
+
+#include "geometry/domain.hpp"
+#include "geometry/ray_caster.hpp"
+#include "geometry/surface.hpp"
+
+#include <array>
+#include <cstdint>
+#include <vector>
+
+namespace rille::geometry {
+
+/// First hits on an extruded surface: rays are projected on the plane y = 0 and intersected with
+/// the segments there. A uniform grid over the period holds the segments; every empty cell knows
+/// one rectangle of empty cells around it, so a ray crosses the open space in one step.
+///
+/// Watertight: whether a segment is crossed depends only on which side of the ray its two vertices
+/// lie, and a shared vertex gives both its segments the same answer. Only the gas side of a segment
+/// is hit.
+class SegmentCaster {
+public:
+    SegmentCaster(const Domain&, const Surface&, double z_open);
+
+    /// As RayCaster::trace.
+    Hit trace(const Vec3& origin, const Vec3& direction, int from_element) const;
+
+private:
+    struct Segment {
+        double ax, az, bx, bz;
+        int element;
+    };
+    struct Rectangle { // inclusive ranges of cells
+        int x0, x1, z0, z1;
+    };
+    struct Ray;  // the ray in the frame of the image it is in
+    struct Best; // nearest crossing so far
+
+    void choose_grid(const Surface&);
+    void fill_cells(const Surface&);
+    void find_rectangles();
+    Rectangle grow(int ix, int iz, const std::vector<int>& sums) const;
+    std::vector<int> occupancy_sums() const;
+    std::vector<int> cells_by_clearance() const;
+
+    bool enter(Ray&) const;
+    void fold_into_period(Ray&, double t) const;
+    bool cross_side(Ray&) const;
+    void test_cell(const Ray&, int cell, Best&) const;
+    Hit finish_hit(const Ray&, const Best&) const;
+    Hit finish_open(Ray&) const;
+    bool convex_joint(int first, int second) const;
+
+    Domain domain_;
+    double z_open_ = 0;
+    double width_ = 0, x_min_ = 0, z_min_ = 0, z_top_ = 0;
+    double cell_x_ = 1, cell_z_ = 1, per_cell_x_ = 1, per_cell_z_ = 1;
+    int nx_ = 1, nz_ = 1;
+    double slack_ = 0;                        ///< [nm] hits this far behind the origin still count
+    std::vector<std::array<double, 4>> ends_; ///< per element: ax, az, bx, bz
+    std::vector<std::array<int, 2>> convex_neighbour_; ///< per element; -1 if none
+    std::vector<int> first_;                           ///< per cell + 1: range in `segments_`
+    std::vector<Segment> segments_;                    ///< copies, cell after cell
+    std::vector<int> rectangle_of_;                    ///< per cell; -1 where there are segments
+    std::vector<Rectangle> rectangles_;
+};
+
+} // namespace rille::geometry
