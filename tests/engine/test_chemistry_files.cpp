@@ -324,7 +324,7 @@ TEST_CASE("faults of chemistry files are named and placed", "[chemistry]") {
     CHECK(problems_of(file_with(good + ", standing: measured}}"))
               .find("sticking: the key \"source\" is missing") != std::string::npos);
     CHECK(problems_of(file_with("{kind: adsorption, neutral: Cl, adsorbate: Cl, sticking: 0.3}")) ==
-          "f:9:68: materials.Si.processes[1].sticking: \"0.3\" stands where a cited value is due, "
+          "f:9:66: materials.Si.processes[1].sticking: \"0.3\" stands where a cited value is due, "
           "for example {value: 0.5, standing: published, source: \"...\"}");
     CHECK(problems_of(file_with("{kind: adsorption, neutral: Cl, adsorbate: Cl, sticking: {value: "
                                 "1.3" +
