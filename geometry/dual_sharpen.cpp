@@ -13,7 +13,7 @@ constexpr double flat_cosine = 0.978;  ///< 12 deg: quads round a vertex away fr
 constexpr double sharp_cosine = 0.906; ///< 25 deg: a vertex worth looking at
 constexpr double edge_cosine = 0.866;  ///< 30 deg between one-sided normals: an edge
 constexpr double third_cosine = 0.707; ///< 45 deg to both faces of an edge: a third face
-constexpr double reach = 3.3;          ///< [cells] faces are fitted within
+constexpr double reach = 4.2;          ///< [cells] faces are fitted within
 constexpr double lateral = 0.8;        ///< [cells] weight along an edge: it may be curved
 constexpr double largest_spread = 0.35; ///< of the angle between faces; more is a round surface
 
@@ -228,10 +228,16 @@ class Sharpener {
                 seed[2] = static_cast<int>(c);
             }
         }
-        solid.count = seed[2] < 0 ? 2 : 3;
+        // A curved face may look like two: then try without the third.
+        return (seed[2] >= 0 && split(samples, seed, 3, solid)) || split(samples, seed, 2, solid);
+    }
+
+    static bool split(std::vector<Sample>& samples, const int (&seed)[3], int count, LocalSolid& solid) {
+        solid.count = count;
         for (Sample& s : samples) {
             double nearest = -2;
-            for (int f = 0; f < solid.count; ++f) {
+            s.weight = 1;
+            for (int f = 0; f < count; ++f) {
                 const double cosine = s.normal.dot(samples[seed[f]].normal);
                 if (cosine > nearest) {
                     nearest = cosine;
@@ -240,7 +246,7 @@ class Sharpener {
             }
         }
         fit(samples, solid);
-        if (solid.count == 2) {
+        if (count == 2) {
             const Vec3 along = solid.face[0].normal.cross(solid.face[1].normal).normalized();
             for (Sample& s : samples) {
                 const double away = s.point.dot(along) / lateral;
