@@ -5,6 +5,8 @@
 
 #include <catch2/catch.hpp>
 
+#include <chrono>
+
 using namespace rille;
 using namespace rille::geometry;
 using namespace rille::tests;
@@ -122,4 +124,48 @@ TEST_CASE("full surfaces cover one period whatever the sides", "[surface]") {
             CHECK(wrong == 0);
             CHECK(outside == 0);
         }
+}
+
+TEST_CASE("a round via keeps its rim", "[surface]") {
+    // Oracle: circle of the via's rim and foot. Source: derived here.
+    // Tolerance: 0.05 cell for every vertex; some vertex within 0.05 cell of the rim all round.
+    for (const double radius : {10.0, 20.0}) {
+        const Domain d = full(static_cast<int>(3 * radius), static_cast<int>(3 * radius), 1.0);
+        const double depth = 12.4;
+        const auto via = [&](const Vec3& q) {
+            const double r = std::hypot(q.x - 0.3, q.y + 0.2) - radius, z = q.z - 0.2;
+            if (z >= 0) return r >= 0 ? z : std::hypot(r, z);
+            if (r < 0 && z > -depth) return std::min(-r, z + depth);
+            if (r >= 0) return -std::min(-z, z > -depth ? r : std::hypot(r, z + depth));
+            return z + depth;
+        };
+        const Surface s = extract_surface(make_band(d, via, -depth, 1));
+        CHECK(loose_edges(s, d) == 0);
+        CHECK(largest_distance(s, via) < 0.05);
+        std::vector<int> seen(36, 0);
+        for (const Vec3& p : s.vertices) {
+            const double x = p.x - 0.3, y = p.y + 0.2;
+            if (std::hypot(std::hypot(x, y) - radius, p.z - 0.2) < 0.06)
+                seen[static_cast<int>((std::atan2(y, x) + M_PI) / (2 * M_PI) * 35.999)] = 1;
+        }
+        CHECK(std::count(seen.begin(), seen.end(), 1) == 36);
+    }
+}
+
+TEST_CASE("contouring is quick", "[surface][timing]") {
+    // 200,000 surface cells in well under 0.3 s; the limit leaves room for a busy machine.
+    const Domain d = full(400, 400, 1.0);
+    const auto wave = [&](const Vec3& p) {
+        return 0.9 * (p.z - 6 * std::cos(p.x * M_PI / 40) * std::cos(p.y * M_PI / 50));
+    };
+    const geometry::Band band = make_band(d, wave, -7, 7);
+    double best = 1e9;
+    std::size_t elements = 0;
+    for (int n = 0; n < 3; ++n) {
+        const auto start = std::chrono::steady_clock::now();
+        elements = extract_surface(band).size();
+        best = std::min(best, std::chrono::duration<double>(std::chrono::steady_clock::now() - start).count());
+    }
+    WARN(elements << " elements of " << band.size() << " nodes in " << best << " s");
+    CHECK(best < 1.5);
 }
