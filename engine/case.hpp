@@ -74,6 +74,7 @@ struct Case {
     geometry::Domain domain;
     double spacing_asked = 0;     ///< [nm] before rounding to a whole number of cells
     std::vector<std::string> materials;     ///< the run's material list; ids are indices
+    std::vector<char> insulator;            ///< per material: 1 = electrical insulator
     std::vector<geometry::Film> films;      ///< mask first if there is one
     int substrate_first = 0;                ///< index of the first film below the mask in `films`
     geometry::MaskShape mask;

@@ -63,4 +63,31 @@ struct YieldFunction {
 double energy_yield(const EnergyLaw&, double energy_ev);
 double angle_factor(const AngleLaw&, double cos_incidence);
 
+/// The yield of a molecular ion whose atoms share its energy: n(atoms) times the yield of one atom
+/// at energy / atoms. Collapse of Cl_x+ and SiCl_x+ yields on energy per halogen: Nakazaki et al.,
+/// Jpn. J. Appl. Phys. 53, 056201 (2014) [abstract read]. atoms >= 1. Throws InternalError for the
+/// Yamamura-Tawara law, whose projectile is an element.
+YieldFunction shared_by_atoms(const YieldFunction&, double atoms);
+
+/// Two bodies of the collision theories: atomic numbers, masses [amu], surface binding energy [eV].
+struct CollisionPair {
+    double z1 = 0, m1 = 0; ///< projectile
+    double z2 = 0, m2 = 0; ///< target
+    double us_ev = 0;
+};
+/// Threshold and Thomas-Fermi energy of the Bohdansky law [from memory]; q is fitted per pair.
+BohdanskyLaw bohdansky_law(const CollisionPair&, double q);
+/// Angular law of a heavy ion at one energy: Yamamura, Radiat. Eff. 80, 57 (1984), with the Sigmund
+/// exponent (5/3 by theory, 1.71 in some tables). Atom density of the target in nm^-3. f, which
+/// diverges at the threshold, is kept <= 15.
+YamamuraAngle yamamura_angle(const CollisionPair&, double atom_density, double energy_ev,
+                             double sigmund_exponent = 5.0 / 3.0);
+
+/// Intermediate quantities of the Yamamura-Tawara law, for checks against printed values.
+struct YamamuraTawaraTerms {
+    double gamma = 0, alpha = 0, eps = 0, ke = 0, sn = 0, stopping_ev_a2 = 0, big_gamma = 0;
+    double threshold_ev = 0;
+};
+YamamuraTawaraTerms yamamura_tawara_terms(const YamamuraTawaraLaw&, double energy_ev);
+
 } // namespace rille::fluxes

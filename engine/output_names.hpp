@@ -1,0 +1,20 @@
+// SPDX-License-Identifier: Apache-2.0
+#pragma once
+
+namespace rille::engine::output_names {
+
+/// What a run writes into its folder. Frames lie in their own folder as frame_0000.vtp and so on.
+inline constexpr const char* resolved_case = "case.yaml";
+inline constexpr const char* record = "run.json";
+inline constexpr const char* history = "history.csv";
+inline constexpr const char* profile = "profile.csv";
+inline constexpr const char* metrics = "metrics.json";
+inline constexpr const char* series = "front.pvd";
+inline constexpr const char* level_set = "front.vdb";
+inline constexpr const char* picture_svg = "picture.svg";
+inline constexpr const char* picture_png = "picture.png";
+inline constexpr const char* frames = "frames";
+inline constexpr const char* all[] = {resolved_case, record,    history,     profile,    metrics,
+                                      series,        level_set, picture_svg, picture_png};
+
+} // namespace rille::engine::output_names

@@ -1,0 +1,105 @@
+// SPDX-License-Identifier: Apache-2.0
+#include "engine/profile_csv.hpp"
+
+#include "engine/case.hpp"
+#include "engine/number_text.hpp"
+
+#include <boost/math/distributions/students_t.hpp>
+#include <cmath>
+
+namespace rille::engine {
+namespace {
+
+constexpr double seconds_per_minute = 60;
+constexpr double degrees = 180 / 3.14159265358979323846;
+
+double element_error(const SurfaceState& state, std::size_t element) {
+    std::vector<double> deviation;
+    for (const auto& batch : state.displacement) deviation.push_back(batch[element]);
+    return sampling_error(deviation);
+}
+
+std::string name_at(const std::vector<std::string>& names, const std::vector<int>& index,
+                    std::size_t element) {
+    if (index.empty()) return "";
+    const int i = index[element];
+    return i >= 0 && i < static_cast<int>(names.size()) ? csv_field(names[i]) : "";
+}
+
+std::string header(const Case& c, const SurfaceState& state) {
+    std::string text = c.domain.extruded()
+                           ? "x_nm,z_nm,arc_length_nm,normal_deg,length_nm,chain"
+                           : "x_nm,y_nm,z_nm,normal_x_1,normal_y_1,normal_z_1,area_nm2,chain";
+    text += ",material,film";
+    for (const int material : state.grown.material)
+        text += ",grown_" + column_name(c.materials.at(material)) + "_nm";
+    text += ",rate_nm_per_min,sampling_error_nm";
+    for (const NamedField& field : state.fields)
+        text += "," + column_name(field.name) + "_" + field.unit;
+    return text + "\n";
+}
+
+std::string place(const Case& c, const SurfaceState& state, const std::vector<double>& arc,
+                  std::size_t e) {
+    const geometry::Surface& s = state.surface;
+    const geometry::Vec3 p = s.centre[e], n = s.normal[e];
+    std::string text = shortest(p.x);
+    const auto add = [&](double value) { text += "," + shortest(value); };
+    if (!c.domain.extruded()) add(p.y);
+    add(p.z);
+    if (c.domain.extruded()) {
+        add(arc[e]);
+        add(std::atan2(n.x, n.z) * degrees);
+    } else {
+        add(n.x);
+        add(n.y);
+        add(n.z);
+    }
+    add(s.area[e]);
+    return text + "," + std::to_string(s.chain.empty() ? 0 : s.chain[e]);
+}
+
+} // namespace
+
+double sampling_error(const std::vector<double>& batch_deviation) {
+    const double batches = static_cast<double>(batch_deviation.size());
+    if (batches < 2) return 0;
+    double sum = 0;
+    for (const double w : batch_deviation) sum += w * w;
+    const boost::math::students_t_distribution<double> student(batches - 1);
+    return boost::math::quantile(student, 0.975) * std::sqrt(sum / (batches * (batches - 1)));
+}
+
+std::vector<double> arc_length(const geometry::Surface& s) {
+    std::vector<double> arc(s.size());
+    double end = 0;
+    for (std::size_t e = 0; e < s.size(); ++e) {
+        // Elements of a chain are stored in walking order.
+        if (e > 0 && !s.chain.empty() && s.chain[e] != s.chain[e - 1]) end = 0;
+        arc[e] = end + 0.5 * s.area[e];
+        end += s.area[e];
+    }
+    return arc;
+}
+
+std::string profile_csv(const Case& c, const SurfaceState& state) {
+    std::vector<std::string> films;
+    for (const auto& film : c.films) films.push_back(film.name);
+    const std::vector<double> arc =
+        c.domain.extruded() ? arc_length(state.surface) : std::vector<double>();
+    std::string text = header(c, state);
+    for (std::size_t e = 0; e < state.surface.size(); ++e) {
+        text += place(c, state, arc, e);
+        text += "," + name_at(c.materials, state.material, e) + "," + name_at(films, state.film, e);
+        for (const auto& thickness : state.grown.thickness) text += "," + shortest(thickness[e]);
+        text += ",";
+        if (!state.rate.empty()) text += shortest(state.rate[e] * seconds_per_minute);
+        text += ",";
+        if (!state.displacement.empty()) text += shortest(element_error(state, e));
+        for (const NamedField& field : state.fields) text += "," + shortest(field.value[e]);
+        text += "\n";
+    }
+    return text;
+}
+
+} // namespace rille::engine

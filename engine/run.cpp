@@ -1,0 +1,181 @@
+// SPDX-License-Identifier: Apache-2.0
+#include "engine/run.hpp"
+
+#include "engine/metrics.hpp"
+#include "geometry/check.hpp"
+
+#include <algorithm>
+#include <chrono>
+#include <cmath>
+#include <limits>
+
+namespace rille::engine {
+namespace {
+
+/// The state of the front as files and metrics want it. `solved` may be null.
+SurfaceState snapshot(const Case& the_case, Simulation& simulation,
+                      const fluxes::SurfaceStep* solved) {
+    SurfaceState state;
+    state.time_s = simulation.time_s();
+    const std::size_t step = std::min(simulation.step_index(), the_case.steps.size() - 1);
+    state.step = the_case.steps[step].name;
+    state.surface = simulation.surface();
+    state.grown = simulation.films();
+    state.displacement = simulation.displacement_errors();
+    if (solved)
+        fill_state(state, the_case, *solved);
+    else
+        state.material = simulation.materials();
+    return state;
+}
+
+HistoryRow history_row(const Case& the_case, const Simulation& simulation,
+                       const std::string& step, double step_start_s,
+                       const fluxes::SurfaceStep& solved) {
+    HistoryRow row;
+    row.time_s = simulation.time_s();
+    row.step = step;
+    row.step_time_s = simulation.time_s() - step_start_s;
+    row.time_step_s = simulation.last_dt_s();
+    row.sub_steps = simulation.health().sub_steps;
+    for (const auto& response : solved.response) {
+        row.highest_rate = std::max(row.highest_rate, response.rate);
+        row.lowest_rate = std::min(row.lowest_rate, response.rate);
+    }
+    row.elements = static_cast<int>(simulation.surface().size());
+    row.iterations = solved.iterations;
+    row.residual = solved.residual;
+    row.redistance_shift = simulation.health().largest_redistance_shift;
+    row.rays = simulation.health().rays;
+    row.lost_rays = simulation.health().lost_rays;
+    measure_row(the_case, simulation.surface(), row);
+    return row;
+}
+
+void note_health(const Case& the_case, const Simulation& simulation, RunRecord& record) {
+    const Health& health = simulation.health();
+    record.steps = simulation.outcomes();
+    record.simulated_s = simulation.time_s();
+    record.refreshes = health.refreshes;
+    record.rays = health.rays;
+    record.lost_rays = health.lost_rays;
+    record.redistance_shift = health.largest_redistance_shift;
+    const Timings& t = simulation.timings();
+    record.timings = {{"contour", t.extract}, {"ray caster", t.cast}, {"ions, neutrals, kinetics", t.fluxes},
+                      {"advance", t.advance}, {"carry", t.carry}};
+    for (const auto& part : simulation.isolated_parts())
+        record.warnings.push_back(
+            (part.kind == geometry::IsolatedPart::Kind::closed_void
+                 ? std::string("a void has closed off")
+                 : std::string("a piece of solid has come off")) +
+            " near x = " + std::to_string(part.centre.x) + " nm, z = " +
+            std::to_string(part.centre.z) + " nm");
+    for (const std::string& warning : charging_warnings(the_case))
+        record.warnings.push_back(warning);
+}
+
+bool is_insulator(const Case& the_case, int material) {
+    return material < static_cast<int>(the_case.insulator.size()) && the_case.insulator[material];
+}
+
+} // namespace
+
+double expected_duration(const Case& the_case) {
+    OpenField field(the_case);
+    std::map<std::string, double> duration;
+    double total = 0;
+    for (const RecipeStep& step : the_case.steps) {
+        double time = step.end.time_s;
+        if (step.end.kind == StepEnd::Kind::share_of_step)
+            time = step.end.share * duration[step.end.of_step];
+        else if (step.end.kind != StepEnd::Kind::time) {
+            const auto film = std::find_if(
+                the_case.films.begin(), the_case.films.end(),
+                [&](const geometry::Film& f) { return f.name == step.end.film; });
+            time = std::min(step.no_longer_than_s, field.time_to(film->top, step.plasma));
+        }
+        field.advance(time, step.plasma);
+        duration[step.name] = time;
+        total += time;
+    }
+    return total;
+}
+
+std::vector<std::string> charging_warnings(const Case& the_case) {
+    std::vector<std::string> warnings;
+    double width = std::numeric_limits<double>::infinity();
+    for (const auto& opening : the_case.mask.openings)
+        width = std::min(width, opening.width_x);
+    double depth = 0;
+    bool insulating_above_stop = false, conductor_to_insulator = false;
+    for (std::size_t f = the_case.substrate_first; f < the_case.films.size(); ++f) {
+        const geometry::Film& film = the_case.films[f];
+        const bool insulator = is_insulator(the_case, film.material);
+        if (insulator) insulating_above_stop = true;
+        if (std::isfinite(film.bottom)) depth = -film.bottom;
+        if (f > static_cast<std::size_t>(the_case.substrate_first) && insulator &&
+            !is_insulator(the_case, the_case.films[f - 1].material))
+            conductor_to_insulator = true;
+    }
+    const bool insulating_mask =
+        the_case.mask.thickness > 0 && is_insulator(the_case, the_case.films[0].material);
+    const double aspect = (depth + the_case.mask.thickness) / width;
+    const char* effect = ": charging is not modelled; floor rate and clear time are optimistic, "
+                         "notching and twisting are not predicted";
+    if ((insulating_above_stop || insulating_mask) && aspect > 10)
+        warnings.push_back("insulating film or mask above aspect ratio 10 (mask included)" +
+                           std::string(effect));
+    if (conductor_to_insulator)
+        warnings.push_back("a conductor is etched down to an insulator" + std::string(effect));
+    return warnings;
+}
+
+RunOutcome run_case(const Case& the_case, RunObserver& observer, const std::atomic<bool>& stop) {
+    using Clock = std::chrono::steady_clock;
+    const auto started = Clock::now();
+    RunOutcome outcome;
+    Simulation simulation(the_case);
+    const double expected = expected_duration(the_case);
+    const double interval =
+        the_case.frame_interval_s > 0 ? the_case.frame_interval_s : expected / 10;
+    const auto frame = [&](const fluxes::SurfaceStep* solved) {
+        outcome.frames.push_back(snapshot(the_case, simulation, solved));
+        observer.framed(outcome.frames.back());
+    };
+    frame(&simulation.arrivals());
+    double next_frame = interval;
+    while (!simulation.finished() && !stop) {
+        const std::size_t index = simulation.step_index();
+        const std::string name = the_case.steps[index].name;
+        const double start_s =
+            simulation.outcomes().empty() ? 0.0 : simulation.outcomes().back().end_s;
+        simulation.step(next_frame);
+        if (simulation.finished()) break;
+        outcome.result.history.push_back(
+            history_row(the_case, simulation, name, start_s, simulation.arrivals()));
+        const double share = std::min(
+            1.0, (index + (simulation.step_index() > index ? 1.0 : simulation.step_progress())) /
+                     the_case.steps.size());
+        observer.progressed(simulation, outcome.result.history.back(), share);
+        if (simulation.time_s() >= next_frame * (1 - 1e-12)) {
+            frame(&simulation.arrivals());
+            next_frame += interval;
+        }
+    }
+    outcome.interrupted = !simulation.finished();
+    frame(&simulation.arrivals());
+    outcome.result.history.push_back(history_row(the_case, simulation, outcome.frames.back().step,
+                                                 0.0, simulation.arrivals()));
+    outcome.result.last = outcome.frames.back();
+    RunRecord& record = outcome.result.record;
+    record.status = outcome.interrupted      ? "interrupted"
+                    : simulation.all_reached() ? "done"
+                                               : "not cleared";
+    note_health(the_case, simulation, record);
+    record.wall_seconds = std::chrono::duration<double>(Clock::now() - started).count();
+    const auto front = std::make_shared<geometry::Front>(simulation.front());
+    outcome.result.write_level_set = [front](const std::string& path) { front->write_vdb(path); };
+    return outcome;
+}
+
+} // namespace rille::engine

@@ -1,0 +1,43 @@
+// SPDX-License-Identifier: Apache-2.0
+#pragma once
+
+#include "engine/case.hpp"
+#include "engine/output_folder.hpp"
+#include "engine/run_result.hpp"
+#include "engine/simulation.hpp"
+
+#include <atomic>
+#include <vector>
+
+namespace rille::engine {
+
+/// Told as the run goes on. Calls come from the run's own thread, in order.
+class RunObserver {
+  public:
+    virtual ~RunObserver() = default;
+    /// After each refresh. `share` of the whole run that is done, in [0, 1], as far as can be told.
+    virtual void progressed(const Simulation&, const HistoryRow&, double share) = 0;
+    /// A frame: the front at a time of output, t = 0 and the end included.
+    virtual void framed(const SurfaceState&) = 0;
+};
+
+/// What a finished or interrupted run leaves.
+struct RunOutcome {
+    RunResult result;
+    std::vector<SurfaceState> frames; ///< t = 0 first, the last state last
+    bool interrupted = false;
+};
+
+/// Runs a case from its first step to its last, or until `stop` is set (seen after each refresh).
+/// Throws NumericsError; what was computed until then is in the frames already observed.
+RunOutcome run_case(const Case&, RunObserver&, const std::atomic<bool>& stop);
+
+/// Estimated length [s] of the process: times as stated, and for steps that end at a film the
+/// open field's time, at most the step's limit.
+double expected_duration(const Case&);
+
+/// Charging is not modelled: says so where it matters, an insulator above aspect ratio 10 or a
+/// conductor etched down to an insulator (common practice, no source).
+std::vector<std::string> charging_warnings(const Case&);
+
+} // namespace rille::engine

@@ -1,0 +1,318 @@
+// SPDX-License-Identifier: Apache-2.0
+#include "engine/simulation.hpp"
+
+#include "engine/metrics.hpp"
+#include "engine/sources.hpp"
+#include "fluxes/surface_chemistry.hpp"
+#include "geometry/check.hpp"
+#include "geometry/nearest.hpp"
+#include "geometry/ray_caster.hpp"
+
+#include <algorithm>
+#include <chrono>
+#include <cmath>
+#include <limits>
+#include <set>
+
+namespace rille::engine {
+namespace {
+
+using geometry::Surface;
+using geometry::Vec3;
+
+constexpr double refresh_move = 0.5;      // [cells] arrivals are renewed after this movement
+constexpr double lost_ray_share = 1e-5;   // a run with more lost rays than this is not trusted
+constexpr double no_film_nm = 1e-9;       // thinner grown film counts as none
+
+/// Adds the wall time of its scope to a counter.
+class Stopwatch {
+  public:
+    explicit Stopwatch(double& total) : total_(total), start_(Clock::now()) {}
+    ~Stopwatch() { total_ += std::chrono::duration<double>(Clock::now() - start_).count(); }
+    Stopwatch(const Stopwatch&) = delete;
+    Stopwatch& operator=(const Stopwatch&) = delete;
+
+  private:
+    using Clock = std::chrono::steady_clock;
+    double& total_;
+    Clock::time_point start_;
+};
+
+geometry::Front initial_front(const Case& c) {
+    const auto distance = geometry::initial_distance(c.domain, c.mask, c.liner_thickness);
+    const double margin = 4 * c.domain.spacing;
+    return {c.domain, distance, -margin, c.mask.thickness + c.liner_thickness + margin};
+}
+
+/// Film materials that may grow in the run, deepest first: the liner, then what the chemistry
+/// deposits.
+geometry::GrownFilms initial_films(const Case& c, std::size_t elements) {
+    geometry::GrownFilms films;
+    if (c.liner_thickness > 0) {
+        films.material.push_back(c.liner_material);
+        films.thickness.emplace_back(elements, c.liner_thickness);
+    }
+    for (const int material : fluxes::deposited_materials(c.mechanism))
+        if (std::find(films.material.begin(), films.material.end(), material) ==
+            films.material.end()) {
+            films.material.push_back(material);
+            films.thickness.emplace_back(elements, 0.0);
+        }
+    return films;
+}
+
+double highest(const Surface& surface) {
+    double z = -std::numeric_limits<double>::infinity();
+    for (const Vec3& v : surface.vertices)
+        z = std::max(z, v.z);
+    return z;
+}
+
+} // namespace
+
+Simulation::Simulation(const Case& the_case)
+    : case_(the_case), stack_(the_case.films), front_(initial_front(the_case)),
+      surface_(geometry::extract_surface(front_)),
+      films_(initial_films(the_case, surface_.size())), open_field_(the_case) {
+    for (int b = 0; b < fluxes::batches; ++b)
+        error_fields_.push_back({"displacement error " + std::to_string(b),
+                                 geometry::Carry::intensive,
+                                 std::vector<double>(surface_.size(), 0.0)});
+    begin_step();
+}
+
+fluxes::MaterialsInReach Simulation::materials_in_reach(const Surface& surface,
+                                                        const geometry::GrownFilms& films) const {
+    fluxes::MaterialsInReach reach;
+    reach.first.push_back(0);
+    const double h = case_.domain.spacing;
+    for (std::size_t e = 0; e < surface.size(); ++e) {
+        std::vector<int> found; // outermost first, each material once
+        const auto add = [&found](int material) {
+            if (std::find(found.begin(), found.end(), material) == found.end())
+                found.push_back(material);
+        };
+        double grown = 0;
+        for (std::size_t f = films.material.size(); f-- > 0;)
+            if (films.thickness[f][e] > no_film_nm) {
+                add(films.material[f]);
+                grown += films.thickness[f][e];
+            }
+        const double z = surface.centre[e].z - surface.normal[e].z * (grown + 1e-3 * h);
+        add(stack_.material_at(z));
+        // What a step of half a cell, or a tilt of the normal, may meet; and what may grow.
+        const int last = stack_.film_at(z - 1.5 * h);
+        for (int film = stack_.film_at(z + 1.5 * h); film <= last; ++film)
+            add(stack_.films()[film].material);
+        for (const int material : films.material)
+            add(material);
+        reach.material.insert(reach.material.end(), found.begin(), found.end());
+        reach.first.push_back(static_cast<int>(reach.material.size()));
+    }
+    return reach;
+}
+
+std::vector<int> Simulation::materials() const {
+    const auto reach = materials_in_reach(surface_, films_);
+    std::vector<int> outermost(surface_.size());
+    for (std::size_t e = 0; e < surface_.size(); ++e)
+        outermost[e] = reach.material[reach.first[e]];
+    return outermost;
+}
+
+fluxes::SurfaceStep Simulation::solve(const Surface& surface, const geometry::GrownFilms& films,
+                                      const fluxes::SurfaceStep* previous) {
+    std::unique_ptr<geometry::RayCaster> caster;
+    {
+        const Stopwatch watch(timings_.cast);
+        caster = std::make_unique<geometry::RayCaster>(
+            case_.domain, surface, highest(surface) + 2 * case_.domain.spacing);
+    }
+    const Stopwatch watch(timings_.fluxes);
+    const std::string& plasma =
+        finished() ? case_.steps.back().plasma : case_.steps[step_index_].plasma;
+    fluxes::Sampling sampling;
+    sampling.rays_per_element = case_.rays_per_element;
+    sampling.ions_per_species = case_.ions_per_species;
+    sampling.seed = case_.seed;
+    sampling.refresh = refresh_++;
+    auto solved = fluxes::solve_surface(case_.domain, surface, *caster,
+                                        materials_in_reach(surface, films), case_.mechanism,
+                                        case_.reflection,
+                                        sources_of(case_, case_.plasmas.at(plasma)), sampling,
+                                        previous);
+    health_.rays += caster->traced();
+    health_.lost_rays += caster->lost();
+    health_.largest_sticking_residual = std::max(health_.largest_sticking_residual, solved.residual);
+    ++health_.refreshes;
+    if (health_.lost_rays > 100 && health_.lost_rays > lost_ray_share * health_.rays)
+        throw NumericsError(std::to_string(health_.lost_rays) + " of " +
+                            std::to_string(health_.rays) +
+                            " rays ended neither on the surface nor in the open");
+    return solved;
+}
+
+const fluxes::SurfaceStep& Simulation::arrivals() {
+    if (!present_valid_) {
+        const auto previous = std::move(present_);
+        present_ = solve(surface_, films_, previous.response.empty() ? nullptr : &previous);
+        present_valid_ = true;
+    }
+    return present_;
+}
+
+Simulation::Trial Simulation::try_advance(const fluxes::SurfaceStep& step, double time,
+                                          double max_move) {
+    Trial trial{front_, {}, films_, {}};
+    std::vector<int> growth(surface_.size(), -1);
+    for (std::size_t e = 0; e < growth.size(); ++e)
+        for (std::size_t f = 0; f < films_.material.size(); ++f)
+            if (films_.material[f] == step.growth_material[e]) growth[e] = static_cast<int>(f);
+    {
+        const Stopwatch watch(timings_.advance);
+        geometry::AdvanceLimits limits;
+        limits.time = time;
+        limits.max_move = max_move;
+        trial.report = geometry::advance(trial.front, surface_, step.rates, stack_, trial.films,
+                                         growth, -std::numeric_limits<double>::infinity(), limits);
+    }
+    const Stopwatch watch(timings_.extract);
+    trial.surface = geometry::extract_surface(trial.front);
+    return trial;
+}
+
+/// Replaces each rate by its mean with the rate at the end of the predicted step (Heun's method),
+/// found at the foot of the element's displacement.
+void Simulation::average_rates(fluxes::SurfaceStep& now, const fluxes::SurfaceStep& later,
+                               const Trial& predicted) const {
+    const geometry::NearestElement nearest(case_.domain, predicted.surface);
+    const std::size_t angles = now.rates.angles.size();
+    if (later.rates.angles.size() != angles) return;
+    for (std::size_t e = 0; e < surface_.size(); ++e) {
+        const Vec3 foot = surface_.centre[e] - surface_.normal[e] * predicted.report.moved[e];
+        const int there = nearest(foot);
+        if (there < 0) continue;
+        for (int r = now.rates.first_row[e]; r < now.rates.first_row[e + 1]; ++r) {
+            const int other = later.rates.row(there, now.rates.material[r]);
+            if (other < 0) continue;
+            for (std::size_t k = 0; k < angles; ++k)
+                now.rates.table[r * angles + k] = 0.5 * (now.rates.table[r * angles + k] +
+                                                         later.rates.table[other * angles + k]);
+        }
+        for (std::size_t b = 0; b < now.rate_batch.size(); ++b)
+            now.rate_batch[b][e] = 0.5 * (now.rate_batch[b][e] + later.rate_batch[b][there]);
+    }
+}
+
+Simulation::Trial Simulation::heun(double time_limit) {
+    const fluxes::SurfaceStep& now = arrivals();
+    Trial predicted = try_advance(now, time_limit, refresh_move);
+    geometry::GrownFilms films = predicted.films;
+    {
+        const Stopwatch watch(timings_.carry);
+        std::vector<geometry::SurfaceField> thickness;
+        std::vector<geometry::SurfaceField*> fields;
+        for (auto& film : films.thickness)
+            thickness.push_back({"film", geometry::Carry::per_area, film});
+        for (auto& field : thickness)
+            fields.push_back(&field);
+        geometry::carry_fields(surface_, predicted.surface, predicted.report.moved,
+                               case_.domain.width_x(), case_.domain.width_y(),
+                               case_.domain.sides == geometry::Sides::periodic, fields);
+        for (std::size_t f = 0; f < films.thickness.size(); ++f)
+            films.thickness[f] = thickness[f].value;
+    }
+    const fluxes::SurfaceStep later = solve(predicted.surface, films, &now);
+    average_rates(present_, later, predicted);
+    return try_advance(present_, predicted.report.time, 2 * refresh_move);
+}
+
+double Simulation::distance_to_goal(const Surface& surface) const {
+    const StepEnd& end = recipe().end;
+    const auto film = std::find_if(case_.films.begin(), case_.films.end(),
+                                   [&](const geometry::Film& f) { return f.name == end.film; });
+    RILLE_CHECK(film != case_.films.end(), "unknown film " + end.film);
+    const auto& openings = case_.mask.openings;
+    const auto opening = std::find_if(openings.begin(), openings.end(),
+                                      [&](const geometry::Opening& o) { return o.name == end.at; });
+    RILLE_CHECK(opening != openings.end(), "unknown place " + end.at);
+    const geometry::FeatureSite site = feature_sites(case_)[opening - openings.begin()];
+    const auto floor = geometry::floor_of(case_.domain, surface, site);
+    if (!floor) return std::numeric_limits<double>::infinity();
+    double z = floor->centre.value;
+    if (end.kind == StepEnd::Kind::cleared)
+        z = std::max({z, floor->left_edge.value, floor->right_edge.value});
+    return z - film->top;
+}
+
+/// Given a trial that overshoots the goal, finds the time within the step at which the goal is met
+/// (to 1e-3 of the step, on the sub-cell surface) and returns the trial that ends there.
+Simulation::Trial Simulation::land_on_goal(Trial&& beyond, const fluxes::SurfaceStep& step) {
+    double early = 0, late = beyond.report.time;
+    double above = distance_to_goal(surface_), below = distance_to_goal(beyond.surface);
+    const double tolerance = 2e-4 * late;
+    Trial best = std::move(beyond);
+    for (int n = 0; n < 40 && late - early > tolerance; ++n) {
+        const double share = std::isfinite(above) ? above / (above - below) : 0.5;
+        // Secant, kept away from the ends so that the bracket shrinks from both sides.
+        const double between = n % 3 == 2 ? 0.5 : std::clamp(share, 1e-4, 1 - 1e-4);
+        const double time = early + between * (late - early);
+        Trial trial = try_advance(step, time, 2 * refresh_move);
+        const double distance = distance_to_goal(trial.surface);
+        if (distance <= 0) {
+            best = std::move(trial);
+            late = time;
+            below = distance;
+        } else {
+            early = time;
+            above = distance;
+        }
+        if (std::fabs(below) < 1e-6 * case_.domain.spacing) break;
+    }
+    return best;
+}
+
+void Simulation::accept(Trial&& trial, const fluxes::SurfaceStep& step) {
+    const double dt = trial.report.time;
+    for (std::size_t e = 0; e < surface_.size() && !step.rate_batch.empty(); ++e) {
+        double mean = 0;
+        for (const auto& batch : step.rate_batch)
+            mean += batch[e] / step.rate_batch.size();
+        for (std::size_t b = 0; b < step.rate_batch.size(); ++b)
+            error_fields_[b].value[e] += (step.rate_batch[b][e] - mean) * dt;
+    }
+    {
+        const Stopwatch watch(timings_.carry);
+        std::vector<geometry::SurfaceField> thickness;
+        for (auto& film : trial.films.thickness)
+            thickness.push_back({"film", geometry::Carry::per_area, std::move(film)});
+        std::vector<geometry::SurfaceField*> fields;
+        for (auto& field : thickness)
+            fields.push_back(&field);
+        for (auto& field : error_fields_)
+            fields.push_back(&field);
+        geometry::carry_fields(surface_, trial.surface, trial.report.moved, case_.domain.width_x(),
+                               case_.domain.width_y(),
+                               case_.domain.sides == geometry::Sides::periodic, fields);
+        for (std::size_t f = 0; f < thickness.size(); ++f)
+            films_.thickness[f] = std::move(thickness[f].value);
+    }
+    front_ = std::move(trial.front);
+    surface_ = std::move(trial.surface);
+    present_valid_ = false;
+    open_field_.advance(dt, recipe().plasma);
+    time_s_ += dt;
+    last_dt_s_ = dt;
+    health_.sub_steps += trial.report.sub_steps;
+    health_.largest_redistance_shift =
+        std::max(health_.largest_redistance_shift, trial.report.redistance_shift);
+    find_isolated();
+}
+
+void Simulation::find_isolated() {
+    const bool any = std::any_of(surface_.chain.begin(), surface_.chain.end(),
+                                 [](int chain) { return chain != 0; });
+    if (any && isolated_.empty()) isolated_ = geometry::find_isolated_parts(front_, surface_);
+}
+
+} // namespace rille::engine

@@ -1,0 +1,111 @@
+// SPDX-License-Identifier: Apache-2.0
+#pragma once
+
+#include "engine/case.hpp"
+#include "engine/open_field.hpp"
+#include "engine/run_record.hpp"
+#include "fluxes/surface_step.hpp"
+#include "geometry/front.hpp"
+#include "geometry/topology.hpp"
+
+#include <cstdint>
+#include <map>
+#include <memory>
+#include <string>
+#include <vector>
+
+namespace rille::engine {
+
+/// Seconds of wall time by phase of the run.
+struct Timings {
+    double extract = 0, cast = 0, fluxes = 0, advance = 0, carry = 0;
+};
+
+/// Counters of everything that could quietly go wrong.
+struct Health {
+    std::uint64_t rays = 0, lost_rays = 0;
+    double largest_redistance_shift = 0; ///< [cells]
+    double largest_sticking_residual = 0;
+    int refreshes = 0, sub_steps = 0;
+};
+
+/// A run in progress: the front, what rides on it, and where the recipe stands. One call of step()
+/// is one refresh of the arrivals.
+class Simulation {
+  public:
+    explicit Simulation(const Case&);
+
+    bool finished() const { return step_index_ >= case_.steps.size(); }
+    /// Advances by one refresh, to the end of the recipe step at most, and not beyond `no_later_than`
+    /// [s of simulated time] (so that outputs fall on their times). Throws NumericsError.
+    void step(double no_later_than_s);
+
+    double time_s() const { return time_s_; }
+    double last_dt_s() const { return last_dt_s_; }
+    std::size_t step_index() const { return step_index_; }
+    const std::vector<StepOutcome>& outcomes() const { return outcomes_; }
+    /// False once a step ran into its limit before it reached what it was to reach.
+    bool all_reached() const { return all_reached_; }
+    const geometry::Front& front() const { return front_; }
+    const geometry::Surface& surface() const { return surface_; }
+    const geometry::GrownFilms& films() const { return films_; }
+    /// Displacement error of the elements by batch: [batch][element], nm, along -normal.
+    std::vector<std::vector<double>> displacement_errors() const;
+    /// Outermost material of each element.
+    std::vector<int> materials() const;
+    /// Arrivals and rates on the present surface under the plasma of the present (or last) step.
+    const fluxes::SurfaceStep& arrivals();
+    const OpenField& open_field() const { return open_field_; }
+    const Health& health() const { return health_; }
+    const Timings& timings() const { return timings_; }
+    const std::vector<geometry::IsolatedPart>& isolated_parts() const { return isolated_; }
+    /// Share of the present recipe step that is done, in [0, 1], as far as can be told.
+    double step_progress() const;
+
+  private:
+    /// The state after a tried advance.
+    struct Trial {
+        geometry::Front front;
+        geometry::Surface surface;
+        geometry::GrownFilms films; ///< on the elements of the surface before the advance
+        geometry::AdvanceReport report;
+    };
+    const RecipeStep& recipe() const { return case_.steps[step_index_]; }
+    fluxes::MaterialsInReach materials_in_reach(const geometry::Surface&,
+                                                const geometry::GrownFilms&) const;
+    fluxes::SurfaceStep solve(const geometry::Surface&, const geometry::GrownFilms&,
+                              const fluxes::SurfaceStep* previous);
+    Trial try_advance(const fluxes::SurfaceStep&, double time, double max_move);
+    Trial heun(double time_limit);
+    void average_rates(fluxes::SurfaceStep& now, const fluxes::SurfaceStep& later,
+                       const Trial& predicted) const;
+    void accept(Trial&&, const fluxes::SurfaceStep&);
+    void find_isolated();
+    double distance_to_goal(const geometry::Surface&) const;
+    double step_end_time() const;
+    Trial land_on_goal(Trial&& beyond, const fluxes::SurfaceStep&);
+    void end_step(bool reached);
+    void begin_step();
+
+    const Case& case_;
+    geometry::Stack stack_;
+    geometry::Front front_;
+    geometry::Surface surface_;
+    geometry::GrownFilms films_;
+    std::vector<geometry::SurfaceField> error_fields_; ///< one per batch
+    fluxes::SurfaceStep present_;
+    bool present_valid_ = false;
+    OpenField open_field_;
+    std::vector<StepOutcome> outcomes_;
+    std::map<std::string, double> duration_s_; ///< of finished steps
+    std::vector<geometry::IsolatedPart> isolated_;
+    double time_s_ = 0, last_dt_s_ = 0, step_start_s_ = 0;
+    double start_distance_ = 0; ///< distance to the goal when the step began [nm]
+    std::size_t step_index_ = 0;
+    bool all_reached_ = true;
+    std::uint64_t refresh_ = 0;
+    Health health_;
+    Timings timings_;
+};
+
+} // namespace rille::engine

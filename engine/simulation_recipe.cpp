@@ -1,0 +1,107 @@
+// SPDX-License-Identifier: Apache-2.0
+// How a run follows its recipe: when a step begins, how long it may go on, how it ends.
+#include "engine/simulation.hpp"
+
+#include "geometry/check.hpp"
+
+#include <algorithm>
+#include <cmath>
+#include <limits>
+
+namespace rille::engine {
+namespace {
+
+constexpr double forever = std::numeric_limits<double>::infinity();
+
+bool by_profile(const StepEnd& end) {
+    return (end.kind == StepEnd::Kind::reaches || end.kind == StepEnd::Kind::cleared) &&
+           end.at != "open field";
+}
+
+bool by_open_field(const StepEnd& end) {
+    return (end.kind == StepEnd::Kind::reaches || end.kind == StepEnd::Kind::cleared) &&
+           end.at == "open field";
+}
+
+double film_top(const Case& c, const std::string& name) {
+    for (const geometry::Film& film : c.films)
+        if (film.name == name) return film.top;
+    throw InternalError("unknown film " + name);
+}
+
+} // namespace
+
+void Simulation::begin_step() {
+    if (finished()) return;
+    step_start_s_ = time_s_;
+    start_distance_ = by_profile(recipe().end) ? distance_to_goal(surface_) : 0.0;
+}
+
+double Simulation::step_end_time() const {
+    const StepEnd& end = recipe().end;
+    switch (end.kind) {
+    case StepEnd::Kind::time: return step_start_s_ + end.time_s;
+    case StepEnd::Kind::share_of_step:
+        return step_start_s_ + end.share * duration_s_.at(end.of_step);
+    case StepEnd::Kind::reaches:
+    case StepEnd::Kind::cleared: break;
+    }
+    return step_start_s_ + recipe().no_longer_than_s;
+}
+
+void Simulation::step(double no_later_than_s) {
+    RILLE_CHECK(!finished(), "the recipe is done");
+    const StepEnd end = recipe().end;
+    const double last = step_end_time();
+    double open_field_time = forever;
+    if (by_open_field(end))
+        open_field_time = time_s_ + open_field_.time_to(film_top(case_, end.film), recipe().plasma);
+    if (by_profile(end) && distance_to_goal(surface_) <= 0) return end_step(true);
+    const double until = std::min({last, open_field_time, no_later_than_s});
+    const double rounding = 1e-12 * std::max(1.0, until);
+    if (until - time_s_ > rounding) {
+        Trial trial = heun(until - time_s_);
+        const bool met = by_profile(end) && distance_to_goal(trial.surface) <= 0;
+        if (met) trial = land_on_goal(std::move(trial), present_);
+        accept(std::move(trial), present_);
+        if (met) return end_step(true);
+    }
+    if (by_open_field(end) && time_s_ >= open_field_time - rounding) end_step(true);
+    else if (time_s_ >= last - rounding) end_step(!by_profile(end) && !by_open_field(end));
+}
+
+void Simulation::end_step(bool reached) {
+    const RecipeStep& step = recipe();
+    const bool timed = !by_profile(step.end) && !by_open_field(step.end);
+    const std::string goal =
+        timed ? "time"
+              : (step.end.kind == StepEnd::Kind::cleared ? "cleared down to " : "reached ") +
+                    step.end.film + " at " + step.end.at;
+    if (!reached && step.must_end)
+        throw NumericsError("step " + step.name + ": " + step.end.film + " was not " + goal +
+                            " within its limit of " + std::to_string(step.no_longer_than_s) + " s");
+    all_reached_ = all_reached_ && reached;
+    outcomes_.push_back(
+        {step.name, step_start_s_, time_s_, reached ? goal : "time limit; not " + goal});
+    duration_s_[step.name] = time_s_ - step_start_s_;
+    ++step_index_;
+    present_valid_ = false;
+    begin_step();
+}
+
+double Simulation::step_progress() const {
+    if (finished()) return 1.0;
+    const double by_time = (time_s_ - step_start_s_) / std::max(1e-300, step_end_time() - step_start_s_);
+    if (!by_profile(recipe().end) || !(start_distance_ > 0)) return std::clamp(by_time, 0.0, 1.0);
+    const double by_depth = 1.0 - distance_to_goal(surface_) / start_distance_;
+    return std::clamp(std::max(by_time, by_depth), 0.0, 1.0);
+}
+
+std::vector<std::vector<double>> Simulation::displacement_errors() const {
+    std::vector<std::vector<double>> errors;
+    for (const auto& field : error_fields_)
+        errors.push_back(field.value);
+    return errors;
+}
+
+} // namespace rille::engine

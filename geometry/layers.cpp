@@ -1,0 +1,147 @@
+// SPDX-License-Identifier: Apache-2.0
+#include "geometry/layers.hpp"
+
+#include <algorithm>
+#include <cmath>
+#include <cstdlib>
+#include <limits>
+
+namespace rille::geometry {
+
+namespace {
+constexpr double endless = std::numeric_limits<double>::infinity();
+} // namespace
+
+double walk(const RateTables& tables, const Layers& layers, double angle, double time,
+            std::array<double, Layers::capacity>& share) {
+    double left = time, distance = 0;
+    for (int k = 0; k < layers.count; ++k) {
+        const double rate = tables.rate(layers.row[k], angle);
+        const bool last = k + 1 == layers.count || rate <= 0 || layers.thickness[k] >= rate * left;
+        share[k] = last ? left / time : layers.thickness[k] / (rate * time);
+        if (last) {
+            std::fill(share.begin() + k + 1, share.begin() + layers.count, 0.0);
+            return distance + rate * left;
+        }
+        distance += layers.thickness[k];
+        left -= layers.thickness[k] / rate;
+    }
+    return distance;
+}
+
+LayerFinder::LayerFinder(const Band& band, const Surface& surface, const NormalRates& rates,
+                         const RateTables& tables, const Stack& stack, const GrownFilms& films)
+    : band_(band), surface_(surface), rates_(rates), tables_(tables), stack_(stack),
+      films_(films) {}
+
+bool LayerFinder::near(int element, const Vec3& p, double reach) const {
+    for (const std::vector<double>& thickness : films_.thickness)
+        if (thickness[element] > 0) return true;
+    const std::vector<Film>& films = stack_.films();
+    const int top = stack_.film_at(p.z + reach), bottom = stack_.film_at(p.z - reach);
+    return top != bottom && films.size() > 1;
+}
+
+int LayerFinder::film_inside(int element, const Vec3& foot) const {
+    // Just inside: a point exactly on an interface belongs to the film on the solid's side.
+    const double step = 1e-9 * band_.domain.spacing;
+    return stack_.film_at(foot.z - step * surface_.normal[element].z);
+}
+
+int LayerFinder::row_below(int element, const Vec3& foot) const {
+    return row_of_film(element, film_inside(element, foot));
+}
+
+double LayerFinder::grown(int element, Layers& out) const {
+    double sum = 0;
+    for (int f = static_cast<int>(films_.thickness.size()) - 1; f >= 0; --f) {
+        const double thickness = films_.thickness[f][element];
+        if (thickness <= 0) continue;
+        out.add(rates_.row(element, films_.material[f]), thickness);
+        sum += thickness;
+    }
+    return sum;
+}
+
+void LayerFinder::stack_below(int element, Vec3 p, double reach, Layers& out) const {
+    const Vec3 inward = -surface_.normal[element];
+    const double step = 1e-9 * band_.domain.spacing;
+    for (double gone = 0; out.count < Layers::capacity;) {
+        const int film = film_inside(element, p);
+        const int row = row_of_film(element, film);
+        const double depth = stack_.distance_to_interface(p + inward * step, inward) + step;
+        gone += depth;
+        const bool blocked = tables_.largest(row) == 0;
+        out.add(row, blocked || gone > reach ? endless : depth);
+        if (blocked || gone > reach) return;
+        p += inward * depth;
+    }
+}
+
+void LayerFinder::below(int element, const Vec3& foot, double reach, Layers& out) const {
+    out.count = 0;
+    const double films = grown(element, out);
+    if (films > reach) return;
+    stack_below(element, foot - surface_.normal[element] * films, reach - films, out);
+}
+
+double LayerFinder::limit(std::size_t cell, const double* phi, double steep, int from,
+                          int& after) const {
+    const Band::Cell& c = band_.cells[cell];
+    const double h = band_.domain.spacing, z = (c.k + 0.5) * h, slope = std::max(steep, 1.0);
+    const std::vector<Film>& films = stack_.films();
+    const int own = stack_.film_at(z);
+    after = -1;
+    if (phi[cell] < 0) {
+        if (own == from) return endless;
+        // The interface of film `from` that faces the cell.
+        const double gap = own > from ? films[from].bottom - z : z - films[from].top;
+        after = own > from ? from + 1 : from - 1;
+        return std::max(0.0, (-phi[cell] - std::max(0.0, gap)) / slope);
+    }
+    if (own != from) return endless;
+    double least = endless;
+    for (int side = 4; side < 6; ++side) {
+        const int n = band_.neighbour[cell][side];
+        if (n < 0 || phi[n] >= 0) continue;
+        const int other = stack_.film_at((band_.cells[n].k + 0.5) * h);
+        if (other == own) continue;
+        const double gap = other > own ? z - films[own].bottom : films[own].top - z;
+        const double left = std::max(0.0, (gap - phi[cell]) / slope);
+        if (left < least) {
+            least = left;
+            after = other > own ? own + 1 : own - 1;
+        }
+    }
+    return least;
+}
+
+void LayerFinder::for_cell(std::size_t cell, const double* phi, double steep, int element,
+                           const Vec3& foot, double reach, Layers& out) const {
+    out.count = 0;
+    const double films = grown(element, out);
+    if (films > reach) return;
+    const Vec3 p = foot - surface_.normal[element] * films;
+    const int from = film_inside(element, p);
+    int after = -1;
+    const double bound = limit(cell, phi, steep, from, after) - films;
+    const Vec3 inward = -surface_.normal[element];
+    if (after < 0 || stack_.distance_to_interface(p, inward) <= bound || bound > reach) {
+        stack_below(element, p, reach - films, out);
+        return;
+    }
+    // Through the rest of the foot's film, then the films between it and the cell, each once.
+    out.add(row_of_film(element, from), std::max(0.0, bound));
+    const int step = after > from ? 1 : -1, count = static_cast<int>(stack_.films().size());
+    double gone = std::max(0.0, bound);
+    for (int film = after; film >= 0 && film < count; film += step) {
+        const int row = row_of_film(element, film);
+        const Film& f = stack_.films()[film];
+        gone += f.top - f.bottom;
+        const bool end = gone > reach || tables_.largest(row) == 0;
+        out.add(row, end ? endless : f.top - f.bottom);
+        if (end) return;
+    }
+}
+
+} // namespace rille::geometry

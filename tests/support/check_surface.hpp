@@ -1,0 +1,65 @@
+// SPDX-License-Identifier: Apache-2.0
+// Properties that every extracted surface must have; each returns the largest violation.
+#pragma once
+
+#include "geometry/domain.hpp"
+#include "geometry/surface.hpp"
+
+#include <algorithm>
+#include <cmath>
+#include <functional>
+
+namespace rille::tests {
+
+using geometry::Domain;
+using geometry::Surface;
+using geometry::Vec3;
+
+/// |sum(area * normal.z) / base - 1|, base the area of the period (its width in extruded).
+inline double projected_area_fault(const Surface& s, const Domain& d) {
+    double sum = 0;
+    for (std::size_t e = 0; e < s.size(); ++e) sum += s.area[e] * s.normal[e].z;
+    const double base = d.width_x() * (d.extruded() ? 1.0 : d.width_y());
+    return std::fabs(sum / base - 1);
+}
+
+/// Whether next, previous, chain and shared corners of an extruded surface agree.
+inline bool consistent_chains(const Surface& s, const Domain& d) {
+    const int n = static_cast<int>(s.size());
+    if (static_cast<int>(s.next.size()) != n || static_cast<int>(s.previous.size()) != n) return false;
+    const double half = 0.5 * d.width_x();
+    const bool mirror = d.sides == geometry::Sides::mirror;
+    for (int e = 0; e < n; ++e) {
+        const Vec3 end = s.vertices[s.corners[e][1]], start = s.vertices[s.corners[e][0]];
+        if (std::fabs(end.x) > half || std::fabs(start.x) > half) return false;
+        const int f = s.next[e];
+        if (f < 0) {
+            if (!mirror || std::fabs(end.x) != half) return false;
+        } else {
+            if (s.previous[f] != e || s.chain[f] != s.chain[e]) return false;
+            const Vec3 begin = s.vertices[s.corners[f][0]];
+            if (begin != end) { // only across a periodic side
+                if (mirror || std::fabs(end.x) != half || begin.x != -end.x || begin.z != end.z)
+                    return false;
+            } else if (s.corners[f][0] != s.corners[e][1]) {
+                return false;
+            }
+        }
+        if (s.previous[e] < 0 && (!mirror || std::fabs(start.x) != half)) return false;
+    }
+    return true;
+}
+
+inline double largest_distance(const Surface& s, const std::function<double(const Vec3&)>& distance) {
+    double worst = 0;
+    for (const Vec3& p : s.vertices) worst = std::max(worst, std::fabs(distance(p)));
+    return worst;
+}
+
+inline double total_area(const Surface& s) {
+    double sum = 0;
+    for (double a : s.area) sum += a;
+    return sum;
+}
+
+} // namespace rille::tests

@@ -1,0 +1,183 @@
+// SPDX-License-Identifier: Apache-2.0
+#include "engine/run.hpp"
+#include "engine/metrics.hpp"
+#include "tests/support/trench_case.hpp"
+
+#include <catch2/catch.hpp>
+
+using namespace rille;
+using geometry::Vec3;
+using tests::TrenchCase;
+
+namespace {
+
+struct Silent : engine::RunObserver {
+    void progressed(const engine::Simulation&, const engine::HistoryRow&, double) override {}
+    void framed(const engine::SurfaceState&) override {}
+};
+
+engine::RunOutcome run(const engine::Case& c) {
+    Silent silent;
+    const std::atomic<bool> stop{false};
+    return engine::run_case(c, silent, stop);
+}
+
+/// Widest full width of the film below the mask, less the mask opening [nm].
+geometry::Measured widening(const engine::Case& c, const engine::RunOutcome& outcome) {
+    const auto site = engine::feature_sites(c)[0];
+    const auto widest =
+        geometry::widest_cd(c.domain, outcome.result.last.surface, site, c.films[1].bottom, 0.0);
+    REQUIRE(widest);
+    geometry::Measured result = widest->cd;
+    result.value -= site.width_x;
+    return result;
+}
+
+double floor_depth(const engine::Case& c, const engine::RunOutcome& outcome, int opening) {
+    const auto floor = geometry::floor_of(c.domain, outcome.result.last.surface,
+                                          engine::feature_sites(c)[opening]);
+    REQUIRE(floor);
+    return -floor->centre.value;
+}
+
+fluxes::YieldFunction flat_yield(double value) {
+    return {fluxes::ConstantLaw{value}, fluxes::FlatAngle{}, 1.0};
+}
+
+/// A film etched by ions alone, equally at every angle of incidence.
+void etch_by_ions(TrenchCase& t, int material, double yield) {
+    t.chemistry(material).density = 50;
+    t.chemistry(material).processes.push_back(
+        fluxes::PhysicalSputtering{{}, {t.add_tally(flat_yield(yield))}});
+}
+
+} // namespace
+
+// Oracle: a wall in the spread of a beam receives ions in proportion to the spread, so the width
+// that it loses grows with it; a beam without spread leaves the walls where they are.
+// Source: common practice, no source.
+// Tolerance: the effect must exceed 5 times the stated sampling error and 0.1 cell.
+TEST_CASE("bow grows with the angular spread of the ions", "[validation][trends]") {
+    double before = 0;
+    for (const double degrees : {0.0, 1.0, 2.0, 4.0}) {
+        TrenchCase t(120, 2, 60, 200);
+        t.add_opening("trench", 60);
+        t.set_ions(60, degrees == 0 ? fluxes::IonDistribution::beam(100, Vec3(0, 0, -1))
+                                    : fluxes::IonDistribution::gaussian(
+                                          100, std::tan(degrees * 3.14159265358979 / 180)));
+        etch_by_ions(t, 0, 1.0);
+        t.add_step("main", 120);
+        const auto outcome = run(t.c);
+        const auto width = widening(t.c, outcome);
+        CAPTURE(degrees, width.value);
+        if (degrees == 0)
+            CHECK(std::fabs(width.value) < 0.1 * t.c.domain.spacing);
+        else
+            CHECK(width.value > before + std::max(0.1 * t.c.domain.spacing,
+                                                  5 * engine::sampling_error(
+                                                          width, outcome.result.last.displacement)));
+        before = width.value;
+    }
+}
+
+// Oracle: a film that deposits on the walls and is kept off the floor by ions narrows the floor:
+// the floor narrows more the more of it arrives.
+// Source: continuous taper, angle from vertical = atan(g / v), derived here.
+// Tolerance: monotone by more than 0.5 deg.
+TEST_CASE("more passivant gives more taper", "[validation][trends]") {
+    double before = 90.2;
+    for (const double passivant : {0.0, 20.0, 60.0}) {
+        TrenchCase t(120, 2, 40, 150);
+        t.add_opening("trench", 60);
+        t.set_ions(60, fluxes::IonDistribution::gaussian(100, 0.01));
+        etch_by_ions(t, 0, 1.0);
+        const int neutral = t.add_neutral("P", passivant);
+        const int removal = t.add_tally(flat_yield(1.0));
+        t.chemistry(0).coverages = {"P"};
+        t.chemistry(0).processes.push_back(fluxes::Adsorption{neutral, 0, 0.1, 1, {}});
+        t.chemistry(0).processes.push_back(fluxes::IonRemoval{0, {removal}});
+        fluxes::Deposition build_up;
+        build_up.neutral = neutral;
+        build_up.coverage = 0;
+        build_up.sticking = 0.1;
+        build_up.film_density = 24;
+        build_up.film_material = 3;
+        t.chemistry(0).processes.push_back(build_up);
+        build_up.coverage = -1;
+        t.chemistry(3).density = 24;
+        t.chemistry(3).processes = {build_up, fluxes::PhysicalSputtering{{}, {removal}}};
+        t.add_step("main", 60);
+        const auto outcome = run(t.c);
+        const double depth = floor_depth(t.c, outcome, 0);
+        const auto angles =
+            geometry::sidewall_angles(t.c.domain, outcome.result.last.surface,
+                                      engine::feature_sites(t.c)[0], -0.8 * depth, -0.2 * depth);
+        REQUIRE(angles);
+        CAPTURE(passivant, depth, angles->left.value, angles->right.value);
+        CHECK(angles->left.value == Approx(angles->right.value).margin(0.3));
+        if (passivant == 0)
+            CHECK(angles->left.value == Approx(90.0).margin(0.5));
+        else
+            CHECK(angles->left.value < before - 0.5);
+        before = angles->left.value;
+    }
+}
+
+// Oracle: neutrals reach the floor of the narrower trench less often, so it lags; without neutrals
+// (ions of no spread) both are equally deep.
+// Source: Gottscho, Jurgensen, Vitkavage, J. Vac. Sci. Technol. B 10, 2133 (1992), from memory.
+// Tolerance: lag above 5 %; without neutrals below 0.1 cell.
+TEST_CASE("the narrower of two trenches lags when neutrals limit", "[validation][trends]") {
+    const bool neutral_limited = GENERATE(true, false);
+    TrenchCase t(240, 2, 30, 400);
+    t.add_opening("narrow", 30, -60);
+    t.add_opening("wide", 100, 50);
+    t.set_ions(60, fluxes::IonDistribution::beam(100, Vec3(0, 0, -1)));
+    t.chemistry(0).density = 50;
+    if (neutral_limited) {
+        const int neutral = t.add_neutral("R", 100);
+        t.chemistry(0).coverages = {"R"};
+        t.chemistry(0).processes = {
+            fluxes::Adsorption{neutral, 0, 0.5, 1, {}},
+            fluxes::IonEnhancedEtching{0, 1, {t.add_tally(flat_yield(4))}}};
+    } else {
+        t.chemistry(0).processes = {
+            fluxes::PhysicalSputtering{{}, {t.add_tally(flat_yield(1))}}};
+    }
+    t.add_step("main", 80);
+    const auto outcome = run(t.c);
+    const double narrow = floor_depth(t.c, outcome, 0), wide = floor_depth(t.c, outcome, 1);
+    CAPTURE(narrow, wide);
+    CHECK(wide > 30);
+    if (neutral_limited)
+        CHECK(narrow < 0.95 * wide);
+    else
+        CHECK(std::fabs(narrow - wide) < 0.2);
+}
+
+// Oracle: a tapered mask that erodes at vertical rate m opens its bottom by m t / tan(angle) a side.
+// Source: geometry, derived here.
+// Tolerance: 15 % of the opening and monotone.
+TEST_CASE("faster mask erosion opens the CD", "[validation][trends]") {
+    double before = 0;
+    for (const double yield : {0.0, 0.2, 0.5}) {
+        TrenchCase t(120, 2, 60, 200);
+        t.c.mask.sidewall_angle_deg = 80;
+        t.add_opening("trench", 50);
+        t.set_ions(60, fluxes::IonDistribution::beam(100, Vec3(0, 0, -1)));
+        etch_by_ions(t, 0, 1.0);
+        if (yield > 0) etch_by_ions(t, 1, yield);
+        t.add_step("main", 60);
+        const auto outcome = run(t.c);
+        const auto cd = geometry::cd_at(t.c.domain, outcome.result.last.surface,
+                                        engine::feature_sites(t.c)[0], -1.0);
+        REQUIRE(cd);
+        const double opened = cd->value - 50;
+        const double expected =
+            2 * (yield * 60 / 50 * 60) / std::tan(80 * 3.14159265358979 / 180);
+        CAPTURE(yield, opened, expected);
+        CHECK(opened == Approx(expected).epsilon(0.15).margin(0.4));
+        CHECK(opened >= before - 0.05);
+        before = opened;
+    }
+}
