@@ -70,13 +70,6 @@ double highest(const Surface& surface) {
 
 } // namespace
 
-struct Simulation::Trial {
-    geometry::Front front;
-    Surface surface;
-    geometry::GrownFilms films; ///< on the elements of the surface before the advance
-    geometry::AdvanceReport report;
-};
-
 Simulation::Simulation(const Case& the_case)
     : case_(the_case), stack_(the_case.films), front_(initial_front(the_case)),
       surface_(geometry::extract_surface(front_)),

@@ -1,12 +1,14 @@
 // SPDX-License-Identifier: Apache-2.0
 #pragma once
 
+#include "fluxes/ion_tables.hpp"
 #include "fluxes/ions.hpp"
 #include "fluxes/mechanism.hpp"
 #include "geometry/domain.hpp"
 #include "geometry/ray_caster.hpp"
 #include "geometry/surface.hpp"
 
+#include <cstdint>
 #include <memory>
 #include <vector>
 
@@ -16,29 +18,55 @@ namespace rille::fluxes {
 /// and as a function of the element's normal. extruded: exact (tables of the distribution over the
 /// visible interval of in-plane angles, gathered conservatively per segment). full: gathered along
 /// stratified directions with exact visibility.
+///
+/// Tallies are averages over about five cells of surface, never across a corner, that keep the flux
+/// of the elements averaged over.
 class DirectIons {
   public:
     struct Options {
-        int directions = 256; ///< full only
+        int directions = 256; ///< full only, per ion species; rounded up to a multiple of 8
         std::uint64_t seed = 1;
         std::uint64_t refresh = 0;
     };
     DirectIons(const geometry::Domain&, const geometry::Surface&, const geometry::RayCaster&,
                const std::vector<IonSource>&, const std::vector<Tally>&, const Options&);
+    /// The same with tables built before. Build them once per plasma state.
+    DirectIons(const geometry::Domain&, const geometry::Surface&, const geometry::RayCaster&,
+               std::shared_ptr<const IonTables>, const Options&);
     ~DirectIons();
 
     /// Tally m [nm^-2 s^-1] at element e for its own (conservatively averaged) normal.
     double tally(int m, int element) const;
     /// The same with the normal turned to `angle` (convention of geometry::NormalRates).
     double tally_at(int m, int element, double angle) const;
+    /// tally(m, e) from direction batch b of 0..7 alone; extruded has no noise: tally(m, e).
+    double tally_batch(int b, int m, int element) const;
     /// Ion flux [nm^-2 s^-1] of ion species s at element e: conserved over the surface.
     double flux(int s, int element) const;
     /// Normal angles at which rates should be tabulated for this distribution.
     std::vector<double> rate_angles() const;
 
+    /// What one of the two ways of gathering leaves behind. Vectors over elements.
+    struct Gathered {
+        std::vector<std::vector<float>> row;    ///< [tally][e * angles + k] [nm^-2 s^-1]
+        std::vector<std::vector<double>> flux;  ///< [ion][e]
+        std::vector<std::vector<double>> tally; ///< [tally][e]
+        std::vector<std::vector<double>> batch; ///< [tally][e * 8 + b]; extruded: empty
+    };
+
   private:
-    struct Impl;
-    std::unique_ptr<Impl> impl_;
+    std::shared_ptr<const IonTables> tables_;
+    Gathered gathered_;
 };
+
+/// The two ways; used through DirectIons.
+DirectIons::Gathered gather_extruded(const geometry::Domain&, const geometry::Surface&,
+                                     const IonTables&);
+DirectIons::Gathered gather_full(const geometry::Domain&, const geometry::Surface&,
+                                 const geometry::RayCaster&, const IonTables&,
+                                 const DirectIons::Options&);
+
+/// Linear interpolation of a row at `angle`.
+double on_row(const std::vector<double>& angles, const float* row, double angle);
 
 } // namespace rille::fluxes

@@ -18,36 +18,45 @@ struct IonSample {
     Vec3 direction;
 };
 
+struct InPlane; // ion distribution seen in the plane of a trench: in_plane.hpp
+
 /// Joint distribution of energy and direction of one ion species at the wafer, as a FLUX
 /// distribution through the wafer plane (no further cosine belongs to it). Azimuthally symmetric
-/// about its mean direction.
+/// about the wafer normal, apart from `beam`. A value; copies share their data.
 class IonDistribution {
   public:
     /// Collisionless sheath: energy gain `drop_ev` (sheath voltage plus Te/2), transverse and normal
     /// temperature [eV] at the sheath edge. Et = -Tperp ln u1, Ez = drop - Tpar ln u2 (thermal
-    /// ions in free fall; derived from Liouville's theorem). drop_ev > 0, temperatures >= 0.
+    /// ions in free fall; derived from Liouville's theorem). All >= 0, drop + normal > 0, else
+    /// std::invalid_argument. drop = 0 with equal temperatures is the cosine law.
     static IonDistribution thermal_fall(double drop_ev, double transverse_ev, double normal_ev);
     /// Histogram: weight[e][a] = share of the flux in energy bin e and polar-angle bin a. Inside a
     /// bin uniform in energy and in cos(angle). Edges strictly increasing; angles in deg from the
-    /// surface normal, [0, 90]. Weights are normalised to sum 1.
+    /// surface normal, [0, 90]. Weights are normalised to sum 1. Throws std::invalid_argument.
     static IonDistribution histogram(std::vector<double> energy_edges_ev,
                                      std::vector<double> angle_edges_deg,
                                      std::vector<std::vector<double>> weight);
-    /// All ions at one energy along one direction (tests, tilted beams).
+    /// All ions at one energy along one direction (tests, tilted beams). Needs direction.z < 0.
     static IonDistribution beam(double energy_ev, const Vec3& direction);
-    /// Slope tan(theta_x), tan(theta_y) normal with standard deviation tan_sigma, one energy.
+    /// Slopes tan(theta_x), tan(theta_y) normal with standard deviation tan_sigma, one energy.
     static IonDistribution gaussian(double energy_ev, double tan_sigma);
 
-    /// Inverse-CDF sample from four numbers in [0, 1).
+    /// Inverse-CDF sample from four numbers in [0, 1): polar angle, azimuth, energy, spare.
     IonSample sample(const std::array<double, 4>& u) const;
     double mean_energy_ev() const;
+    /// Share of the flux within polar angle `angle_deg` of the wafer normal.
+    double share_within_deg(double angle_deg) const;
     /// Median of the polar angle [deg].
     double median_angle_deg() const;
-    /// Standard deviation of the in-plane angle [rad], for placing angle nodes.
+    /// Mean and standard deviation of the in-plane angle [rad], for placing angle nodes.
+    double mean_rad() const;
     double spread_rad() const;
+    /// Resolved by in-plane angle: quadrature nodes for everything that a trench needs.
+    const InPlane& in_plane() const;
 
   private:
     struct Impl;
+    explicit IonDistribution(std::shared_ptr<const Impl>);
     std::shared_ptr<const Impl> impl_;
 };
 

@@ -1,0 +1,169 @@
+// SPDX-License-Identifier: Apache-2.0
+#include "fluxes/arc_average.hpp"
+
+#include <algorithm>
+#include <cmath>
+
+namespace rille::fluxes {
+namespace {
+
+using geometry::Domain;
+using geometry::Surface;
+
+constexpr double window_cells = 5;
+
+/// Elements in walking order without a corner between them.
+struct Piece {
+    std::vector<int> elements;
+    bool ring = false; ///< the last joins the first
+};
+
+bool corner_between(const Surface& s, int e, int f) {
+    return s.normal[e].dot(s.normal[f]) < std::cos(corner_angle);
+}
+
+std::vector<Piece> smooth_pieces(const Surface& s) {
+    const int count = static_cast<int>(s.size());
+    std::vector<char> taken(count, 0);
+    std::vector<Piece> pieces;
+    for (int seed = 0; seed < count; ++seed) {
+        if (taken[seed]) continue;
+        int start = seed;
+        bool ring = false;
+        for (int e = s.previous[start]; e >= 0 && !corner_between(s, e, start); e = s.previous[e]) {
+            start = e;
+            if (e == seed) {
+                ring = true;
+                break;
+            }
+        }
+        Piece piece{{}, ring};
+        for (int e = start; e >= 0 && !taken[e]; e = s.next[e]) {
+            if (e != start && corner_between(s, s.previous[e], e)) break;
+            taken[e] = 1;
+            piece.elements.push_back(e);
+        }
+        pieces.push_back(std::move(piece));
+    }
+    return pieces;
+}
+
+/// Second integral over arc of the indicator of [from, to].
+double twice_integrated(double s, double from, double to) {
+    if (s <= from) return 0.0;
+    if (s <= to) return 0.5 * (s - from) * (s - from);
+    return (to - from) * (s - 0.5 * (from + to));
+}
+
+/// Mean over [a, b] of the box average of width `window` of the indicator of [from, to].
+double box_weight(double a, double b, double window, double from, double to) {
+    const double half = 0.5 * window;
+    const auto d = [&](double s) { return twice_integrated(s, from, to); };
+    return std::max(0.0, (d(b + half) - d(a + half) - d(b - half) + d(a - half)) /
+                             (window * (b - a)));
+}
+
+void add_piece(const Surface& surface, const Piece& piece, double window,
+               std::vector<std::vector<ArcAverage::Part>>& rows) {
+    const int n = static_cast<int>(piece.elements.size());
+    std::vector<double> s(n + 1, 0.0);
+    for (int i = 0; i < n; ++i) s[i + 1] = s[i] + surface.area[piece.elements[i]];
+    const double all = s[n];
+    if (all <= window || n == 1) { // shorter than the window: one average
+        for (int e : piece.elements)
+            for (int f : piece.elements) rows[e].push_back({f, surface.area[f] / all});
+        return;
+    }
+    const auto weight = [&](int i, int j) {
+        double w = 0;
+        for (int k = -1; k <= 1; ++k)
+            if (piece.ring || k == 0)
+                w += box_weight(s[i], s[i + 1], window, s[j] + k * all, s[j + 1] + k * all);
+        if (!piece.ring) {
+            w += box_weight(s[i], s[i + 1], window, -s[j + 1], -s[j]);
+            w += box_weight(s[i], s[i + 1], window, 2 * all - s[j + 1], 2 * all - s[j]);
+        }
+        return w;
+    };
+    const auto reaches = [&](int i, int j) {
+        return std::min(std::fabs(s[i + 1] - s[j]), std::fabs(s[j + 1] - s[i])) < 0.6 * window;
+    };
+    for (int i = 0; i < n; ++i) {
+        int low = i, high = i;
+        while (low > 0 && reaches(i, low - 1)) --low;
+        while (high + 1 < n && reaches(i, high + 1)) ++high;
+        std::vector<int> near;
+        for (int j = low; j <= high; ++j) near.push_back(j);
+        if (piece.ring) {
+            for (int j = 0; j < low && s[j] < window; ++j) near.push_back(j);
+            for (int j = n - 1; j > high && all - s[j + 1] < window; --j) near.push_back(j);
+        }
+        double sum = 0;
+        auto& row = rows[piece.elements[i]];
+        for (int j : near) {
+            const double w = weight(i, j);
+            if (w <= 0) continue;
+            row.push_back({piece.elements[j], w});
+            sum += w;
+        }
+        for (auto& part : row) part.weight /= sum;
+    }
+}
+
+void add_around(const Surface& surface, const std::vector<std::vector<int>>& at_vertex, int e,
+                std::vector<ArcAverage::Part>& row) {
+    std::vector<int> found = {e};
+    std::size_t begin = 0;
+    for (int ringed = 0; ringed < 2; ++ringed) {
+        const std::size_t end = found.size();
+        for (std::size_t k = begin; k < end; ++k)
+            for (int corner : surface.corners[found[k]])
+                for (int f : at_vertex[corner])
+                    if (std::find(found.begin(), found.end(), f) == found.end() &&
+                        !corner_between(surface, e, f))
+                        found.push_back(f);
+        begin = end;
+    }
+    double sum = 0;
+    for (int f : found) sum += surface.area[f];
+    for (int f : found) row.push_back({f, surface.area[f] / sum});
+}
+
+} // namespace
+
+ArcAverage arc_average(const Domain& domain, const Surface& surface) {
+    const int count = static_cast<int>(surface.size());
+    std::vector<std::vector<ArcAverage::Part>> rows(count);
+    if (domain.extruded()) {
+        for (const Piece& piece : smooth_pieces(surface))
+            add_piece(surface, piece, window_cells * domain.spacing, rows);
+    } else {
+        std::vector<std::vector<int>> at_vertex(surface.vertices.size());
+        for (int e = 0; e < count; ++e)
+            for (int i = 0; i < 4; ++i)
+                if (i < 3 || surface.corners[e][3] != surface.corners[e][2])
+                    at_vertex[surface.corners[e][i]].push_back(e);
+        for (int e = 0; e < count; ++e) add_around(surface, at_vertex, e, rows[e]);
+    }
+    ArcAverage average;
+    average.first.push_back(0);
+    for (const auto& row : rows) {
+        average.parts.insert(average.parts.end(), row.begin(), row.end());
+        average.first.push_back(static_cast<int>(average.parts.size()));
+    }
+    return average;
+}
+
+std::vector<geometry::Vec3> averaged_normals(const Surface& surface, const ArcAverage& average) {
+    std::vector<geometry::Vec3> normals(surface.size());
+    for (std::size_t e = 0; e < surface.size(); ++e) {
+        geometry::Vec3 sum(0, 0, 0);
+        for (int i = average.first[e]; i < average.first[e + 1]; ++i)
+            sum += surface.normal[average.parts[i].element] * average.parts[i].weight;
+        const double length = sum.length();
+        normals[e] = length > 1e-12 ? sum / length : surface.normal[e];
+    }
+    return normals;
+}
+
+} // namespace rille::fluxes

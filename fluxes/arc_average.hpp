@@ -1,0 +1,40 @@
+// SPDX-License-Identifier: Apache-2.0
+#pragma once
+
+#include "geometry/domain.hpp"
+#include "geometry/surface.hpp"
+
+#include <vector>
+
+namespace rille::fluxes {
+
+/// Averages over a few cells of surface that lose nothing and never reach across a corner.
+///
+/// extruded: box of five cells of arc inside a smooth piece, reflected at the piece's ends, so that
+/// a constant stays constant and the sum of value times length is kept to round-off. full: elements
+/// that share a corner, twice over, within the corner angle.
+struct ArcAverage {
+    struct Part {
+        int element;
+        double weight;
+    };
+    std::vector<int> first;  ///< parts of element e: [first[e], first[e + 1])
+    std::vector<Part> parts; ///< weights of an element sum to 1
+
+    double of(const std::vector<double>& value, int element) const {
+        double sum = 0;
+        for (int i = first[element]; i < first[element + 1]; ++i)
+            sum += parts[i].weight * value[parts[i].element];
+        return sum;
+    }
+};
+
+/// A corner: neighbouring elements whose normals differ by more than this [rad].
+constexpr double corner_angle = 30 * 3.14159265358979323846 / 180;
+
+ArcAverage arc_average(const geometry::Domain&, const geometry::Surface&);
+
+/// Unit normals averaged with those weights.
+std::vector<geometry::Vec3> averaged_normals(const geometry::Surface&, const ArcAverage&);
+
+} // namespace rille::fluxes

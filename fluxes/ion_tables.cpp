@@ -1,0 +1,130 @@
+// SPDX-License-Identifier: Apache-2.0
+#include "fluxes/ion_tables.hpp"
+
+#include <tbb/blocked_range.h>
+#include <tbb/parallel_for.h>
+
+#include <algorithm>
+#include <cmath>
+
+namespace rille::fluxes {
+namespace {
+
+constexpr double pi = 3.14159265358979323846;
+constexpr double degree = pi / 180;
+
+/// Where a surface turns out of the beam of one ion species.
+struct Grazing {
+    double at = 0, spread = 0; ///< [rad]
+};
+
+/// Spacing wanted at angle psi: a quarter of the spread near grazing incidence (the flux there is
+/// spread * (x + ...) with curvature 1 / spread), growing with the distance; yields peak at 50 to 80
+/// deg and need about a degree; the rest is a cosine.
+double spacing_at(double psi, const std::vector<Grazing>& grazing, double coarsen) {
+    const double tilt = std::fabs(psi) / degree;
+    double step = (tilt < 40 ? 2.5 : tilt < 90 ? 1.25 : 6.0) * degree;
+    for (const Grazing& g : grazing) {
+        const double off = std::max(0.0, std::fabs(psi - g.at) - 1.5 * g.spread);
+        step = std::min(step, 0.25 * (g.spread + off));
+    }
+    return coarsen * step;
+}
+
+std::vector<double> march(double from, double to, const std::vector<Grazing>& grazing,
+                          double coarsen) {
+    std::vector<double> stops = {from, to};
+    for (const Grazing& g : grazing)
+        if (g.at > from && g.at < to) stops.push_back(g.at);
+    std::sort(stops.begin(), stops.end());
+    std::vector<double> angles = {from};
+    for (std::size_t s = 1; s < stops.size(); ++s) {
+        const double begin = angles.back(), end = stops[s];
+        if (!(end - begin > 1e-9)) continue;
+        std::vector<double> walk = {begin};
+        while (walk.back() < end) {
+            const double here = spacing_at(walk.back(), grazing, coarsen);
+            walk.push_back(walk.back() +
+                           std::min(here, spacing_at(walk.back() + here, grazing, coarsen)));
+        }
+        const double stretch = (end - begin) / (walk.back() - begin);
+        for (std::size_t i = 1; i + 1 < walk.size(); ++i)
+            angles.push_back(begin + (walk[i] - begin) * stretch);
+        angles.push_back(end);
+    }
+    return angles;
+}
+
+} // namespace
+
+IonTables::IonTables(geometry::Symmetry symmetry, std::vector<IonSource> ions,
+                     std::vector<Tally> tallies)
+    : ions_(std::move(ions)), tallies_(std::move(tallies)) {
+    place_angles(symmetry);
+    if (symmetry != geometry::Symmetry::extruded) return;
+    for (const Tally& tally : tallies_) table_.push_back(tabulate(tally));
+    for (int s = 0; s < static_cast<int>(ions_.size()); ++s)
+        table_.push_back(tabulate({s, {ConstantLaw{1.0}, FlatAngle{}, 1.0}}));
+}
+
+void IonTables::place_angles(geometry::Symmetry symmetry) {
+    const bool extruded = symmetry == geometry::Symmetry::extruded;
+    std::vector<Grazing> grazing;
+    for (const IonSource& ion : ions_) {
+        const double spread =
+            std::clamp(ion.distribution.spread_rad(), 0.1 * degree, 10 * degree);
+        const double mean = ion.distribution.mean_rad();
+        for (double side : {-0.5 * pi, 0.5 * pi}) {
+            const double at = mean + side;
+            const bool known = std::any_of(grazing.begin(), grazing.end(), [&](const Grazing& g) {
+                return std::fabs(g.at - at) < 0.1 * spread && g.spread <= spread;
+            });
+            if (!known) grazing.push_back({at, spread});
+        }
+    }
+    const double from = extruded ? -pi : 0.0;
+    const std::size_t most = extruded ? 240 : 64;
+    for (double coarsen = 1;; coarsen *= 1.1) {
+        angles_ = march(from, pi, grazing, coarsen);
+        if (angles_.size() <= most) break;
+    }
+}
+
+std::vector<double> IonTables::tabulate(const Tally& t) const {
+    const IonSource& ion = ions_[t.ion];
+    const InPlane& plane = ion.distribution.in_plane();
+    std::vector<double> energy;
+    for (const auto& spectrum : plane.spectra) {
+        double sum = 0;
+        for (const auto& e : spectrum)
+            sum += e.share * energy_yield(t.yield.energy, e.energy_ev);
+        energy.push_back(sum * t.yield.scale * ion.flux);
+    }
+    const std::size_t count = angles_.size();
+    std::vector<double> table(plane.angle.size() * count, 0.0);
+    tbb::parallel_for(tbb::blocked_range<std::size_t>(0, count), [&](const auto& range) {
+        for (std::size_t k = range.begin(); k != range.end(); ++k) {
+            const double c = std::cos(angles_[k]), s = std::sin(angles_[k]);
+            for (const InPlane::Node& node : plane.nodes) {
+                const double received = c + node.slope * s; // (r . n) / r_z
+                if (received <= 0) continue;
+                table[(node.bin + 1) * count + k] +=
+                    node.weight * energy[node.spectrum] * received *
+                    angle_factor(t.yield.angle, received * node.cos_polar);
+            }
+            for (std::size_t b = 1; b < plane.angle.size(); ++b)
+                table[b * count + k] += table[(b - 1) * count + k];
+        }
+    });
+    return table;
+}
+
+void IonTables::add(int tally, const InPlane::Place& place, double factor, double* row) const {
+    const std::size_t count = angles_.size();
+    const double* low = table_[tally].data() + place.bin * count;
+    const double* high = low + count;
+    const double a = factor * (1 - place.part), b = factor * place.part;
+    for (std::size_t k = 0; k < count; ++k) row[k] += a * low[k] + b * high[k];
+}
+
+} // namespace rille::fluxes

@@ -1,0 +1,44 @@
+// SPDX-License-Identifier: Apache-2.0
+#pragma once
+
+#include "fluxes/in_plane.hpp"
+#include "fluxes/ions.hpp"
+#include "fluxes/mechanism.hpp"
+#include "geometry/domain.hpp"
+
+#include <vector>
+
+namespace rille::fluxes {
+
+/// What depends on the plasma and the mechanism alone, not on the surface: built once per plasma
+/// state and shared by the DirectIons of every refresh.
+///
+/// extruded: T_m(psi, phi), the tally m on a surface of normal angle psi by the ions from in-plane
+/// angles below phi [nm^-2 s^-1]; what a surface receives is a difference of two T.
+class IonTables {
+  public:
+    IonTables(geometry::Symmetry, std::vector<IonSource>, std::vector<Tally>);
+
+    const std::vector<IonSource>& ions() const { return ions_; }
+    const std::vector<Tally>& tallies() const { return tallies_; }
+    /// Normal angles [rad] at which rates are tabulated: dense where a surface turns out of the
+    /// beam, so that rates linear in between are within 1e-3 of the floor's and 1 % of the wall's.
+    const std::vector<double>& angles() const { return angles_; }
+
+    /// Table of the flux itself (yield 1) of one ion species, for add().
+    int flux_tally(int ion) const { return static_cast<int>(tallies_.size()) + ion; }
+    /// row[k] += factor * T_m(angles()[k], place). extruded only.
+    void add(int tally, const InPlane::Place&, double factor, double* row) const;
+    const InPlane& in_plane(int ion) const { return ions_[ion].distribution.in_plane(); }
+
+  private:
+    void place_angles(geometry::Symmetry);
+    std::vector<double> tabulate(const Tally&) const;
+
+    std::vector<IonSource> ions_;
+    std::vector<Tally> tallies_;
+    std::vector<double> angles_;
+    std::vector<std::vector<double>> table_; ///< [tally][edge * angles + k]
+};
+
+} // namespace rille::fluxes

@@ -1,0 +1,296 @@
+// SPDX-License-Identifier: Apache-2.0
+#include "fluxes/open_sky.hpp"
+
+#include "geometry/check.hpp"
+
+#include <algorithm>
+#include <cmath>
+
+namespace rille::fluxes {
+namespace {
+
+constexpr double pi = 3.14159265358979323846;
+
+/// Angle from the vertical of the direction (x, z), moved by whole turns next to `near`.
+double angle_near(double x, double z, double near) {
+    const double angle = std::atan2(x, z);
+    return angle + 2 * pi * std::round((near - angle) / (2 * pi));
+}
+
+/// Part of the sky of `plane` over [low, high] of alpha + beta tan(phi) where that is positive.
+double positive_part(const InPlane& plane, double alpha, double beta, double low, double high) {
+    const auto sign = [&](double phi) { return alpha * std::cos(phi) + beta * std::sin(phi); };
+    const bool at_low = sign(low) > 0, at_high = sign(high) > 0;
+    if (!at_low && !at_high) return 0.0;
+    if (at_low != at_high) {
+        const double root =
+            std::clamp(std::atan2(beta < 0 ? alpha : -alpha, std::fabs(beta)), low, high);
+        (at_low ? high : low) = root;
+    }
+    return alpha * (plane.share_below(high) - plane.share_below(low)) +
+           beta * (plane.moment_below(high) - plane.moment_below(low));
+}
+
+} // namespace
+
+OpenSky::OpenSky(const geometry::Domain& domain, const geometry::Surface& surface) {
+    RILLE_CHECK(domain.extruded(), "the sky by strings is two-dimensional");
+    period_ = domain.width_x();
+    mirror_ = domain.sides == geometry::Sides::mirror;
+    x_min_ = domain.x_min();
+    length_ = surface.area;
+    unroll(domain, surface);
+    unwrap_normals();
+    const std::size_t n = point_.size();
+    std::vector<double> start(n, 0.0);
+    for (std::size_t i = 1; i < n; ++i) start[i] = normal_[i - 1] - 0.5 * pi;
+    left_ = pull(point_, start);
+    reflected_.resize(n);
+    for (std::size_t i = 0; i < n; ++i)
+        reflected_[i] = {-point_[n - 1 - i].x, point_[n - 1 - i].z};
+    for (std::size_t i = 1; i < n; ++i) start[i] = -(normal_[n - 1 - i] + 0.5 * pi);
+    right_ = pull(reflected_, start);
+    find_floating(domain, surface);
+}
+
+/// Chain 0 from its highest vertex over one full period of the unrolled surface; positions made
+/// continuous by whole periods, mirror images by reflection.
+void OpenSky::unroll(const geometry::Domain&, const geometry::Surface& surface) {
+    int first = -1;
+    const int count = static_cast<int>(surface.size());
+    for (int e = 0; e < count && first < 0; ++e)
+        if (surface.chain[e] == 0 && (!mirror_ || surface.previous[e] < 0)) first = e;
+    RILLE_CHECK(first >= 0, "no part of the surface is open to the source");
+    std::vector<int> order;
+    for (int e = first; e >= 0; e = surface.next[e]) {
+        if (!order.empty() && e == first) break;
+        RILLE_CHECK(static_cast<int>(order.size()) < count, "the open surface never closes");
+        order.push_back(e);
+    }
+    const int n = static_cast<int>(order.size());
+    std::vector<Point> base;
+    for (int e : order) {
+        const geometry::Vec3 a = surface.vertices[surface.corners[e][0]];
+        const geometry::Vec3 b = surface.vertices[surface.corners[e][1]];
+        double from = a.x, to = b.x;
+        if (!mirror_) {
+            if (!base.empty()) from += period_ * std::round((base.back().x - from) / period_);
+            to += period_ * std::round((from - to) / period_);
+        }
+        if (base.empty()) base.push_back({from, a.z});
+        base.push_back({to, b.z});
+    }
+    const double span = base.back().x - base.front().x;
+    RILLE_CHECK(std::fabs(span - period_) < 1e-6 * period_,
+                "the open surface does not span the period");
+    int top = 0;
+    for (int i = 1; i < n; ++i)
+        if (base[i].z > base[top].z) top = i;
+    if (mirror_ && base[n].z > base[top].z) top = n;
+    const auto image = [&](int j) {
+        const int m = static_cast<int>(std::floor(double(j) / n)), r = j - m * n;
+        if (!mirror_) return Point{base[r].x + m * period_, base[r].z};
+        if (m % 2 == 0) return Point{base[r].x + m * period_, base[r].z};
+        return Point{2 * (x_min_ + period_) + (m - 1) * period_ - base[n - r].x, base[n - r].z};
+    };
+    const int total = mirror_ ? 2 * n : n;
+    for (int j = top; j <= top + total; ++j) point_.push_back(image(j));
+    position_.assign(count, -1);
+    for (int i = 0; i < n; ++i) position_[order[i]] = (i >= top ? i : i + total) - top;
+}
+
+void OpenSky::unwrap_normals() {
+    normal_.resize(point_.size() - 1);
+    for (std::size_t i = 0; i < normal_.size(); ++i) {
+        const double x = point_[i + 1].x - point_[i].x, z = point_[i + 1].z - point_[i].z;
+        normal_[i] = angle_near(-z, x, i == 0 ? 0.0 : normal_[i - 1]);
+    }
+}
+
+OpenSky::Strings OpenSky::pull(const std::vector<Point>& point, const std::vector<double>& start_angle) {
+    const int n = static_cast<int>(point.size());
+    Strings strings{std::vector<int>(n, -1), std::vector<double>(n, -0.5 * pi)};
+    for (int i = 1; i < n; ++i) {
+        int vertex = i - 1;
+        double angle = start_angle[i];
+        while (strings.parent[vertex] >= 0 && strings.angle[vertex] > angle) {
+            vertex = strings.parent[vertex];
+            angle = angle_near(point[vertex].x - point[i].x, point[vertex].z - point[i].z, angle);
+        }
+        strings.parent[i] = vertex;
+        strings.angle[i] = angle;
+    }
+    return strings;
+}
+
+/// Angle of the tangent from a point to the surface that ends at `vertex`, seen at `angle`.
+double OpenSky::tangent_angle(const std::vector<Point>& point, const Strings& strings,
+                          const Point& from, int vertex, double angle) {
+    while (strings.parent[vertex] >= 0 && strings.angle[vertex] > angle) {
+        vertex = strings.parent[vertex];
+        angle = angle_near(point[vertex].x - from.x, point[vertex].z - from.z, angle);
+    }
+    return angle;
+}
+
+double OpenSky::flux(const InPlane& plane, int element) const {
+    if (!lit_[element]) return 0.0;
+    if (floating_pieces()) return flux_by_points(plane, element);
+    return flux_by_strings(plane, position_[element]) / length_[element];
+}
+
+/// The rays of in-plane angle phi that land on a segment fill the gap between the left string and
+/// the right string, measured across the rays. Between the angles at which the strings leave one
+/// vertex for the next, that gap is linear in tan(phi), which the tables integrate exactly.
+double OpenSky::flux_by_strings(const InPlane& plane, int position) const {
+    const int last = static_cast<int>(point_.size()) - 1;
+    std::vector<int> left = {position}, right = {position + 1};
+    std::vector<double> left_from, right_to; // angle at which each vertex hands over to the next
+    for (int v = position; v >= 0; v = left_.parent[v]) {
+        const double before = left_from.empty() ? HUGE_VAL : left_from.back();
+        left_from.push_back(std::min(before, left_.parent[v] < 0 ? -HUGE_VAL : left_.angle[v]));
+        if (left_.parent[v] >= 0) left.push_back(left_.parent[v]);
+        if (left_from.back() < -0.5 * pi) break;
+    }
+    for (int v = last - (position + 1); v >= 0; v = right_.parent[v]) {
+        const double before = right_to.empty() ? -HUGE_VAL : right_to.back();
+        right_to.push_back(std::max(before, right_.parent[v] < 0 ? HUGE_VAL : -right_.angle[v]));
+        if (right_.parent[v] >= 0) right.push_back(last - right_.parent[v]);
+        if (right_to.back() > 0.5 * pi) break;
+    }
+    double sum = 0, phi = -0.5 * pi;
+    std::size_t l = left_from.size() - 1, r = 0;
+    while (phi < 0.5 * pi) {
+        while (l > 0 && left_from[l - 1] <= phi) --l;
+        while (r + 1 < right_to.size() && right_to[r] <= phi) ++r;
+        double to = 0.5 * pi;
+        if (l > 0) to = std::min(to, left_from[l - 1]);
+        if (r + 1 < right_to.size()) to = std::min(to, right_to[r]);
+        const Point &a = point_[left[l]], &b = point_[right[r]];
+        sum += positive_part(plane, b.x - a.x, a.z - b.z, phi, to);
+        phi = to;
+    }
+    return sum;
+}
+
+std::vector<Visible> OpenSky::visible(int element, double part) const {
+    if (!lit_[element]) return {};
+    if (floating_pieces()) return visible_by_segments(element, part);
+    const int i = position_[element], last = static_cast<int>(point_.size()) - 1;
+    const Point &a = point_[i], &b = point_[i + 1];
+    const Point here{a.x + part * (b.x - a.x), a.z + part * (b.z - a.z)};
+    Visible seen{-0.5 * pi, 0.5 * pi};
+    if (i > 0) {
+        const Point& p = point_[i - 1];
+        const double angle = angle_near(p.x - here.x, p.z - here.z, normal_[i] - 0.5 * pi);
+        seen.low = std::max(seen.low, tangent_angle(point_, left_, here, i - 1, angle));
+    }
+    if (i + 2 <= last) {
+        const Point& p = point_[i + 2];
+        const double angle = angle_near(here.x - p.x, p.z - here.z, -(normal_[i] + 0.5 * pi));
+        const Point flipped{-here.x, here.z};
+        seen.high = std::min(seen.high, -tangent_angle(reflected_, right_, flipped,
+                                                       last - (i + 2), angle));
+    }
+    if (!(seen.low < seen.high)) return {};
+    return {seen};
+}
+
+/// Chains other than 0: clockwise around solid = a piece of solid; it floats in the gas if it lies
+/// above chain 0 rather than in a closed void.
+void OpenSky::find_floating(const geometry::Domain&, const geometry::Surface& surface) {
+    const int count = static_cast<int>(surface.size());
+    lit_.assign(count, 0);
+    int chains = 0;
+    for (int e = 0; e < count; ++e) {
+        const auto& c = surface.corners[e];
+        segment_.push_back({{surface.vertices[c[0]].x, surface.vertices[c[0]].z},
+                            {surface.vertices[c[1]].x, surface.vertices[c[1]].z}});
+        if (!mirror_) {
+            double& to = segment_.back().b.x;
+            to += period_ * std::round((segment_.back().a.x - to) / period_);
+        }
+        lit_[e] = surface.chain[e] == 0;
+        chains = std::max(chains, surface.chain[e] + 1);
+    }
+    for (int chain = 1; chain < chains; ++chain) {
+        int member = -1;
+        for (int e = 0; e < count && member < 0; ++e)
+            if (surface.chain[e] == chain) member = e;
+        if (member < 0) continue;
+        // Straight up from a point of the piece: an even number of crossings of chain 0 means that
+        // it lies on the gas side of it. (What a floating piece encloses is hidden by the piece.)
+        const Point from{0.5 * (segment_[member].a.x + segment_[member].b.x),
+                         0.5 * (segment_[member].a.z + segment_[member].b.z)};
+        int crossings = 0;
+        for (int e = 0; e < count; ++e) {
+            if (surface.chain[e] != 0) continue;
+            for (int k = -1; k <= 1; ++k) {
+                const double ax = segment_[e].a.x + k * period_, bx = segment_[e].b.x + k * period_;
+                if (mirror_ && k != 0) continue;
+                if ((ax <= from.x) == (bx <= from.x)) continue;
+                const double t = (from.x - ax) / (bx - ax);
+                if (segment_[e].a.z + t * (segment_[e].b.z - segment_[e].a.z) > from.z) ++crossings;
+            }
+        }
+        if (crossings % 2 != 0) continue;
+        for (int e = 0; e < count; ++e)
+            if (surface.chain[e] == chain) {
+                lit_[e] = 1;
+                floating_.push_back(e);
+            }
+    }
+}
+
+std::vector<Visible> OpenSky::visible_by_segments(int element, double part) const {
+    constexpr int images = 4;
+    const Segment& own = segment_[element];
+    const Point here{own.a.x + part * (own.b.x - own.a.x), own.a.z + part * (own.b.z - own.a.z)};
+    std::vector<Visible> hidden;
+    const auto hide = [&](Point a, Point b) {
+        double from = std::atan2(a.x - here.x, a.z - here.z);
+        double to = from + std::remainder(std::atan2(b.x - here.x, b.z - here.z) - from, 2 * pi);
+        if (from > to) std::swap(from, to);
+        hidden.push_back({from, to});
+        if (from < -pi) hidden.push_back({from + 2 * pi, to + 2 * pi});
+        if (to > pi) hidden.push_back({from - 2 * pi, to - 2 * pi});
+    };
+    for (std::size_t e = 0; e < segment_.size(); ++e) {
+        if (!lit_[e]) continue;
+        const Segment& s = segment_[e];
+        for (int k = -images; k <= images; ++k) {
+            if (k == 0 && static_cast<int>(e) == element) continue;
+            const double shift = k * period_;
+            if (!mirror_ || k % 2 == 0) {
+                hide({s.a.x + shift, s.a.z}, {s.b.x + shift, s.b.z});
+            } else {
+                const double centre = 2 * (x_min_ + period_) + shift - period_;
+                hide({centre - s.a.x, s.a.z}, {centre - s.b.x, s.b.z});
+            }
+        }
+    }
+    std::sort(hidden.begin(), hidden.end(), [](const Visible& a, const Visible& b) {
+        return a.low != b.low ? a.low < b.low : a.high < b.high;
+    });
+    std::vector<Visible> seen;
+    double from = -0.5 * pi;
+    for (const Visible& h : hidden) {
+        if (h.low > from && from < 0.5 * pi) seen.push_back({from, std::min(h.low, 0.5 * pi)});
+        from = std::max(from, h.high);
+    }
+    if (from < 0.5 * pi) seen.push_back({from, 0.5 * pi});
+    return seen;
+}
+
+double OpenSky::flux_by_points(const InPlane& plane, int element) const {
+    constexpr int points = 8;
+    const Segment& own = segment_[element];
+    const double x = own.b.x - own.a.x, z = own.b.z - own.a.z;
+    double sum = 0;
+    for (int i = 0; i < points; ++i)
+        for (const Visible& v : visible_by_segments(element, (i + 0.5) / points))
+            sum += positive_part(plane, x, -z, v.low, v.high) / points;
+    return sum / length_[element];
+}
+
+} // namespace rille::fluxes
