@@ -64,9 +64,13 @@ private:
     Vec3 image(Vec3 p, const Vec3& c) const {
         if (domain_.sides != Sides::periodic)
             return p;
-        p.x -= domain_.width_x() * std::round((p.x - c.x) / domain_.width_x());
+        const auto nearest = [](double& at, double to, double width) {
+            if (std::fabs(at - to) > 0.5 * width)
+                at -= width * std::round((at - to) / width);
+        };
+        nearest(p.x, c.x, domain_.width_x());
         if (!domain_.extruded())
-            p.y -= domain_.width_y() * std::round((p.y - c.y) / domain_.width_y());
+            nearest(p.y, c.y, domain_.width_y());
         return p;
     }
     void offer(const Vec3& p, int e, Candidate& best) const;
