@@ -31,6 +31,8 @@ void build_recipe(const Entry& root, Case&, Problems&);
 /// into `root`.
 void build_measure(Entry& root, Case&, Problems&);
 void build_targets(const Entry& root, Case&, Problems&);
+/// The mechanism for the materials, ions and neutrals of the case; masses of the ions.
+void build_chemistry(const Entry& root, const std::string& folder, Case&, Problems&);
 
 /// Film of that name with a bounded thickness or not; -1 if there is none.
 int film_index(const Case&, const std::string& name);

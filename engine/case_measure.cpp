@@ -136,7 +136,7 @@ constexpr Metric standard_metrics[] = {
 struct TargetReader {
     const Entry& entry;
     const std::string& metric;
-    const Case& result;
+    const std::vector<std::string>& lengths; ///< metrics of this case beside the standard ones
     Problems& problems;
 
     void wrong(const std::string& message) { problems.add(entry.at, entry.path, message); }
@@ -148,11 +148,9 @@ struct TargetReader {
             if (metric == standard.name) return standard.dimension;
             known.emplace_back(standard.name);
         }
-        for (const auto& [label, place] : result.cd_places)
-            known.push_back(label + " cd");
-        for (const geometry::Film& film : result.films)
-            if (film.name != "mask") known.push_back(film.name + " loss");
-        if (std::find(known.begin(), known.end(), metric) != known.end()) return Dimension::length;
+        if (std::find(lengths.begin(), lengths.end(), metric) != lengths.end())
+            return Dimension::length;
+        known.insert(known.end(), lengths.begin(), lengths.end());
         wrong(fmt::format("no quantity is called {}; there are: {}{}", quoted(metric),
                           listed(known, 14), did_you_mean(metric, known)));
         return std::nullopt;
@@ -215,13 +213,14 @@ void build_measure(Entry& root, Case& result, Problems& problems) {
 }
 
 void build_targets(const Entry& root, Case& result, Problems& problems) {
-    // Labels of places that could not be read still name a metric.
-    Case known = result;
+    std::vector<std::string> lengths;
     for (const auto& [label, entry] : root["measure"]["cd"].members)
-        known.cd_places.emplace(label, Place{});
+        lengths.push_back(label + " cd");
+    for (const geometry::Film& film : result.films)
+        if (film.name != "mask") lengths.push_back(film.name + " loss");
     for (const auto& [metric, entry] : root["targets"].members)
         if (entry.is_good)
-            result.targets.push_back(TargetReader{entry, metric, known, problems}.read());
+            result.targets.push_back(TargetReader{entry, metric, lengths, problems}.read());
     for (const auto& [key, entry] : root["tool_log"].members) {
         const YamlNode& raw = entry.raw;
         result.tool_log.push_back(key + ": " +

@@ -246,13 +246,6 @@ void find_clearing(const Case& c, const std::string& feature, const geometry::Fl
 
 } // namespace
 
-const Metric* Metrics::find(const std::string& name, const std::string& feature) const {
-    const auto found = std::find_if(metrics.begin(), metrics.end(), [&](const Metric& m) {
-        return m.name == name && (feature.empty() || m.feature == feature);
-    });
-    return found == metrics.end() ? nullptr : &*found;
-}
-
 std::vector<FeatureSite> feature_sites(const Case& c) {
     std::vector<FeatureSite> sites;
     for (const geometry::Opening& opening : c.mask.openings) {

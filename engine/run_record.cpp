@@ -5,8 +5,6 @@
 #include "engine/caution.hpp"
 #include "engine/version.hpp"
 
-#include <chrono>
-#include <ctime>
 #include <fmt/format.h>
 #include <glib.h>
 #include <memory>
@@ -120,15 +118,6 @@ std::string content_hash(const std::string& text) {
                                     reinterpret_cast<const guchar*>(text.data()), text.size()),
         &g_free);
     return digest.get();
-}
-
-std::string utc_now() {
-    const std::time_t now = std::chrono::system_clock::to_time_t(std::chrono::system_clock::now());
-    std::tm utc{};
-    gmtime_r(&now, &utc);
-    char text[32];
-    std::strftime(text, sizeof text, "%Y-%m-%dT%H:%M:%SZ", &utc);
-    return text;
 }
 
 std::uint64_t peak_memory_bytes() {

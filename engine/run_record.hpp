@@ -49,8 +49,6 @@ nlohmann::json record_json(const Case&, const RunRecord&, const std::vector<std:
 std::vector<std::string> cpu_features();
 /// SHA-256 of the text, 64 hexadecimal digits.
 std::string content_hash(const std::string& text);
-/// The present time, UTC, as RunRecord::started wants it.
-std::string utc_now();
 std::uint64_t peak_memory_bytes(); ///< of this process so far; 0 if unknown
 /// "measured", "published", "from memory", "illustrative" with their counts:
 /// "parameters: 0 measured, 12 published, 5 from memory, 3 illustrative".

@@ -3,6 +3,7 @@
 #include "engine/metrics.hpp"
 #include "engine/number_text.hpp"
 
+#include <algorithm>
 #include <cmath>
 #include <fmt/format.h>
 #include <nlohmann/json.hpp>
@@ -83,6 +84,13 @@ std::string with_unit(const std::string& value, const std::string& unit) {
 }
 
 } // namespace
+
+const Metric* Metrics::find(const std::string& name, const std::string& feature) const {
+    const auto found = std::find_if(metrics.begin(), metrics.end(), [&](const Metric& m) {
+        return m.name == name && (feature.empty() || m.feature == feature);
+    });
+    return found == metrics.end() ? nullptr : &*found;
+}
 
 const char* verdict_name(Verdict verdict) {
     switch (verdict) {

@@ -20,6 +20,7 @@ enum class Dimension {
     flux,             ///< nm^-2 s^-1, neutral particles
     ion_flux,         ///< nm^-2 s^-1, singly charged ions; also as a current density
     number_density,   ///< nm^-3
+    site_density,     ///< nm^-2
     mass_density,     ///< g/cm3
     mass,             ///< amu
     share,            ///< 1 (100 % = 1)

@@ -19,9 +19,11 @@ double minmod(double a, double b) {
 }
 
 void slopes_along(const Band& band, const double* phi, std::size_t cell, double inverse_spacing,
-                  int axis, Slopes& out) {
+                  int axis, unsigned unseen, Slopes& out) {
     const int c = static_cast<int>(cell);
-    const int left = band.neighbour[c][2 * axis], right = band.neighbour[c][2 * axis + 1];
+    int left = band.neighbour[c][2 * axis], right = band.neighbour[c][2 * axis + 1];
+    if (unseen >> 2 * axis & 1) left = -1;
+    if (unseen >> (2 * axis + 1) & 1) right = -1;
     const double here = phi[c];
     if (left < 0 || right < 0) {
         // The edge of the band: second-order differences from the side that is there.
@@ -122,16 +124,18 @@ WaveSpeed over_box(const RateTables& tables, int row, bool extruded, const Box& 
 
 } // namespace
 
-Slopes slopes_2d(const Band& band, const double* phi, std::size_t cell, double inverse_spacing) {
+Slopes slopes_2d(const Band& band, const double* phi, std::size_t cell, double inverse_spacing,
+                 unsigned unseen) {
     Slopes s;
-    slopes_along(band, phi, cell, inverse_spacing, 0, s);
-    slopes_along(band, phi, cell, inverse_spacing, 2, s);
+    slopes_along(band, phi, cell, inverse_spacing, 0, unseen, s);
+    slopes_along(band, phi, cell, inverse_spacing, 2, unseen, s);
     return s;
 }
 
-Slopes slopes_3d(const Band& band, const double* phi, std::size_t cell, double inverse_spacing) {
+Slopes slopes_3d(const Band& band, const double* phi, std::size_t cell, double inverse_spacing,
+                 unsigned unseen) {
     Slopes s;
-    for (int axis = 0; axis < 3; ++axis) slopes_along(band, phi, cell, inverse_spacing, axis, s);
+    for (int axis = 0; axis < 3; ++axis) slopes_along(band, phi, cell, inverse_spacing, axis, unseen, s);
     return s;
 }
 
@@ -202,6 +206,20 @@ WaveSpeed RateTables::wave_speed(int row, const Tilt& low, const Tilt& high) con
         if (from < -0.5 * pi && to > -0.5 * pi) take(-0.5 * pi, -1, 0);
     }
     return out;
+}
+
+double upwind_steepness(const Slopes& s, bool recedes, double& waves) {
+    double square = 0, sum = 0;
+    for (int a = 0; a < 3; ++a) {
+        const double up = recedes ? s.plus[a] : s.minus[a];
+        const double down = recedes ? s.minus[a] : s.plus[a];
+        const double g = std::max(std::max(up, 0.0), -std::min(down, 0.0));
+        square += g * g;
+        sum += g;
+    }
+    const double length = std::sqrt(square);
+    waves = length > 0 ? sum / length : 0;
+    return length;
 }
 
 std::array<double, 3> dissipation(const RateTables& tables, int row, bool extruded,
