@@ -24,6 +24,14 @@ const Entry* find_material(const Entry& entry, const std::string& name) {
     return nullptr;
 }
 
+NamedUse use_of(const std::string& name, const Entry& entry) {
+    NamedUse use;
+    use.name = name;
+    use.at = entry.at;
+    use.path = entry.path;
+    return use;
+}
+
 void add_use(std::vector<NamedUse>& uses, const std::string& name, const Entry& entry) {
     const bool known = std::any_of(uses.begin(), uses.end(),
                                    [&](const NamedUse& use) { return use.name == name; });
@@ -34,13 +42,12 @@ void add_use(std::vector<NamedUse>& uses, const std::string& name, const Entry& 
 ChemistryRequest request_of(const Entry& root, const std::string& folder, const Case& the_case) {
     ChemistryRequest request;
     const Entry& chemistry = root["chemistry"];
-    request.chemistry = {chemistry.text, chemistry.at, chemistry.path};
+    request.chemistry = use_of(chemistry.text, chemistry);
     request.configs = configs_folder();
     request.case_folder = folder;
     for (const std::string& name : the_case.materials) {
         const Entry* entry = find_material(root, name);
-        const Entry& where = entry ? *entry : root["stack"];
-        request.materials.push_back({name, where.at, where.path});
+        request.materials.push_back(use_of(name, entry ? *entry : root["stack"]));
     }
     request.ions.emplace();
     request.neutrals.emplace();

@@ -41,7 +41,10 @@ class FeatureMeasurement {
 
     void all() {
         depths();
-        for (const auto& [name, place] : c_.cd_places) cds(name, place);
+        std::vector<std::pair<std::string, Place>> places(c_.cd_places.begin(), c_.cd_places.end());
+        std::stable_sort(places.begin(), places.end(),
+                         [](const auto& a, const auto& b) { return a.second.z > b.second.z; });
+        for (const auto& [name, place] : places) cds(name, place);
         bow();
         angles();
         mask();

@@ -2,6 +2,8 @@
 #include "engine/number_text.hpp"
 
 #include <algorithm>
+#include <array>
+#include <charconv>
 #include <cmath>
 #include <fmt/format.h>
 
@@ -17,6 +19,13 @@ int decimals_for(double value, double error) {
 }
 
 } // namespace
+
+std::string shortest(double value) {
+    if (std::isnan(value)) return "nan";
+    std::array<char, 32> buffer;
+    const auto end = std::to_chars(buffer.data(), buffer.data() + buffer.size(), value);
+    return std::string(buffer.data(), end.ptr);
+}
 
 std::string rounded(double value, double error) {
     std::string text = fmt::format("{:.{}f}", value, decimals_for(value, error));

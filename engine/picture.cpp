@@ -96,13 +96,28 @@ double draw_measured(Svg& svg, const PictureContext& p, double x, double y) {
         svg.text(x, at, (several ? film.feature + ": " : std::string()) + film.film,
                  {11.5, Anchor::start, false, "#222222", false, 0});
         svg.text(x + panel_width, at,
-                 film.cleared ? "cleared" : "not cleared, " + rounded(film.remaining_nm) + " nm left",
-                 {11.5, Anchor::end, !film.cleared, "#222222", false, 0});
+                 film.cleared ? "cleared" : rounded(film.remaining_nm) + " nm left",
+                 {11.5, Anchor::end, false, "#222222", false, 0});
         at += 17;
     }
     svg.text(x, at + 2, "± 95 % sampling error; grid error not assessed",
              {10, Anchor::start, false, "#555555", false, 0});
     return at + 16 - y;
+}
+
+double draw_targets(Svg& svg, const PictureContext& p, double x, double y) {
+    double at = y + heading(svg, x, y, "Targets");
+    for (const TargetVerdict& v : p.metrics.targets) {
+        const bool several = p.c.mask.openings.size() > 1 && !v.feature.empty();
+        svg.text(x, at, several ? v.feature + ": " + v.target : v.target,
+                 {11.5, Anchor::start, false, "#222222", false, 0});
+        std::string verdict = verdict_name(v.verdict);
+        if (v.by_numbers != v.verdict) // the parameters keep it open
+            verdict += std::string(" (") + verdict_name(v.by_numbers) + " by the numbers)";
+        svg.text(x + panel_width, at, verdict, {11.5, Anchor::end, true, "#222222", false, 0});
+        at += 17;
+    }
+    return at - y;
 }
 
 double draw_materials(Svg& svg, const PictureContext& p, double x, double y) {
@@ -211,9 +226,12 @@ void draw_head_and_foot(Svg& svg, const PictureContext& p) {
 
 std::vector<Draw> panel_parts(const PictureContext& p) {
     std::vector<Draw> parts = {
-        [&p](Svg& svg, double x, double y) { return draw_measured(svg, p, x, y); },
-        [&p](Svg& svg, double x, double y) { return draw_materials(svg, p, x, y); },
-        [&p](Svg& svg, double x, double y) { return draw_times(svg, p, x, y); }};
+        [&p](Svg& svg, double x, double y) { return draw_measured(svg, p, x, y); }};
+    if (!p.metrics.targets.empty())
+        parts.emplace_back(
+            [&p](Svg& svg, double x, double y) { return draw_targets(svg, p, x, y); });
+    parts.emplace_back([&p](Svg& svg, double x, double y) { return draw_materials(svg, p, x, y); });
+    parts.emplace_back([&p](Svg& svg, double x, double y) { return draw_times(svg, p, x, y); });
     if (!p.c.domain.extruded())
         parts.emplace_back([&p](Svg& svg, double x, double y) { return draw_plan(svg, p, x, y); });
     return parts;

@@ -172,8 +172,7 @@ std::string metrics_table(const Case& c, const Metrics& metrics) {
     }
     for (const Metrics::Clearing& entry : metrics.clearing)
         text += "  " + padded(several ? entry.feature + ": " + entry.film : entry.film, width + 2) +
-                (entry.cleared ? "cleared"
-                               : "not cleared, " + rounded(entry.remaining_nm) + " nm left") +
+                (entry.cleared ? "cleared" : rounded(entry.remaining_nm) + " nm left") +
                 "\n";
     for (const TargetVerdict& v : metrics.targets)
         text += "  " + padded(verdict_name(v.verdict), 10) + v.target + "  (" + v.reason + ")\n";

@@ -1,4 +1,5 @@
 // SPDX-License-Identifier: Apache-2.0
+#include "engine/case_file.hpp"
 #include "engine/chemistry_file.hpp"
 #include "engine/materials_file.hpp"
 #include "engine/yaml_reader.hpp"
@@ -10,6 +11,7 @@
 #include <filesystem>
 #include <fstream>
 #include <map>
+#include <random>
 #include <string>
 #include <vector>
 
@@ -232,15 +234,84 @@ TEST_CASE("fluorocarbon etches oxide at sensible rates", "[chemistry]") {
             within(rate(c, name, fluorocarbon, 0), -3, -0.2);
     CHECK(respond(c, 0, fluorocarbon, 0).grown_material ==
           static_cast<int>(c.materials.size()) - 1);
+    // A plasma with more radicals and more bias, as for a small contact.
+    const Flat contact{1.3, 700, fluorocarbon.ions, {{"CF2", 4e17}, {"F", 6e17}, {"O", 1e17}}};
+    const double fast = rate(c, "SiO2", contact);
+    within(fast, 300, 500);
+    within(fast / rate(c, "Si3N4", contact), 3, 8);
+    within(fast / rate(c, "amorphous carbon", contact), 5, 10);
+    within(rate(c, "SiO2", contact, 0), -3, -0.2);
     // More oxygen: no film on walls, mask etched faster.
     Flat rich = fluorocarbon;
     rich.neutrals["O"] = 4e17;
     CHECK(rate(c, "SiO2", rich, 0) >= 0);
     CHECK(rate(c, "amorphous carbon", rich) > rate(c, "amorphous carbon", fluorocarbon));
-    // Selectivity to silicon falls with energy less than the oxide rate rises from 200 eV.
+    // The oxide rate follows the ion energy.
     Flat slow = fluorocarbon;
     slow.energy_ev = 200;
     CHECK(rate(c, "SiO2", slow) < 0.8 * oxide);
+}
+
+// Oracle: a shipped mechanism answers anything that can arrive: probabilities and coverages in
+// [0, 1], parts that add up, growth named exactly where the rate is negative, no jump.
+// Source: definitions; arrivals drawn at random over twelve decades, some of them zero.
+// Tolerance: 1e-12 relative for sums; a relative change of 1e-7 of one arrival changes the rate by
+// at most 1e-5 of the sum of all parts that arrivals could drive.
+TEST_CASE("shipped mechanisms answer whatever arrives", "[chemistry]") {
+    std::mt19937_64 random(7);
+    std::uniform_real_distribution<double> decade(-6, 6), unit(0, 1);
+    const auto draw = [&] { return unit(random) < 0.15 ? 0.0 : std::pow(10, decade(random)); };
+    for (const std::string& name : chemistry_names(configs)) {
+        const Chemistry c = load(name, {"Si", "SiO2", "resist", "Si3N4", "amorphous carbon"});
+        std::vector<double> tallies(c.mechanism.tallies.size());
+        std::vector<double> neutrals(c.mechanism.neutrals.size());
+        int faults = 0, jumps = 0, grown = 0;
+        for (int trial = 0; trial < 20000; ++trial) {
+            for (double& t : tallies)
+                t = draw();
+            for (double& n : neutrals)
+                n = draw();
+            const int m = trial % static_cast<int>(c.materials.size());
+            const double temperature = 250 + 250 * unit(random);
+            const auto answer = [&] {
+                return fluxes::respond(c.mechanism, m,
+                                       {tallies.data(), neutrals.data(), temperature});
+            };
+            const fluxes::SurfaceResponse r = answer();
+            const double parts[] = {r.by_ion_enhanced, r.by_sputtering, r.by_spontaneous,
+                                    r.by_deposition};
+            double sum = 0, size = 0, covered = 0;
+            for (const double part : parts) {
+                sum += part;
+                size += std::fabs(part);
+            }
+            bool good = std::isfinite(r.rate) && std::fabs(sum - r.rate) <= 1e-12 * size;
+            for (const double s : r.sticking)
+                good = good && s >= 0 && s <= 1;
+            for (const double t : r.coverage) {
+                good = good && t >= 0 && t <= 1;
+                covered += t;
+            }
+            good = good && covered <= 1 + 1e-12 && (r.grown_material >= 0) == (r.rate < 0);
+            faults += !good;
+            grown += r.rate < 0;
+            // One arrival a little larger.
+            const std::size_t all = tallies.size() + neutrals.size();
+            const auto k = static_cast<std::size_t>(unit(random) * static_cast<double>(all));
+            double& one = k < tallies.size() ? tallies[k] : neutrals[k - tallies.size()];
+            double scale = size;
+            for (const double t : tallies)
+                scale += t / 10;
+            for (const double n : neutrals)
+                scale += n / 10;
+            one *= 1 + 1e-7;
+            jumps += std::fabs(answer().rate - r.rate) > 1e-5 * scale;
+        }
+        INFO(name << ": " << grown << " of 20000 grow");
+        CHECK(faults == 0);
+        CHECK(jumps == 0);
+        CHECK((grown > 0) == (name == "oxide-c4f8-ar-o2"));
+    }
 }
 
 // Oracle: table of the illustrative set at 100 eV: 490.5, 137.9, 328.5 and 0.397 nm/min.
@@ -393,4 +464,28 @@ TEST_CASE("what a chemistry does not know is an error of the case", "[chemistry]
     Problems missing;
     CHECK_FALSE(load_chemistry(request("./none.yaml", {"Si"}), library(), missing));
     CHECK(report_of(missing) == "case.yaml:3:12: chemistry: there is no file ././none.yaml");
+}
+
+// Oracle: a case carries the mechanism of its chemistry, ion masses and standing; a plasma with a
+// species that the chemistry does not know is refused at its place.
+// Source: examples/poly-trench. Tolerance: none.
+TEST_CASE("a case gets its chemistry", "[chemistry]") {
+    const std::string file = std::string(RILLE_ROOT) + "/examples/poly-trench/case.yaml";
+    const Case c = load_case(file);
+    CHECK(c.mechanism.surfaces.size() == c.materials.size());
+    CHECK(c.reflection.size() == c.materials.size());
+    CHECK(c.mechanism.ions == std::vector<std::string>{"Cl2+", "Ar+"});
+    CHECK(c.mechanism.neutrals == std::vector<std::string>{"Cl"});
+    CHECK(c.plasmas.begin()->second.ions.front().mass_amu > 30);
+    CHECK(c.standing.at(fluxes::Standing::illustrative) > 10);
+    CHECK(c.standing.at(fluxes::Standing::published) > 0);
+    try {
+        load_case(file, {"chemistry=argon-milling"});
+        FAIL("argon milling knows no chlorine");
+    } catch (const InputError& error) {
+        const std::string report = error.what();
+        CHECK(report.find("the chemistry argon-milling does not know the ion \"Cl2+\"") !=
+              std::string::npos);
+        CHECK(report.find("does not know the neutral \"Cl\"") != std::string::npos);
+    }
 }

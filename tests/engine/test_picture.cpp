@@ -63,6 +63,8 @@ Metrics sample_metrics() {
                  metric("sidewall angle right", 88.9, "deg", 0.1),
                  metric("mask left", 85.0, "nm", 0.4),        metric("facet angle", 57.0, "deg", 0.6),
                  metric("selectivity", 2.58, "1", 0.02)};
+    m.targets = {{"bottom cd: 55 to 65 nm", "bottom cd", "trench", Verdict::undecided, Verdict::undecided, ""},
+                 {"bow: at most 4 nm", "bow", "trench", Verdict::undecided, Verdict::missed, ""}};
     m.clearing = {{"trench", "gate", true, 0}, {"trench", "stop", false, 7}};
     return m;
 }
@@ -91,8 +93,8 @@ TEST_CASE("picture: a trench, as SVG and PNG") {
     const SurfaceState last = tests::trench_state(c, 1, 75.2);
     const std::string svg = picture_svg(c, sample_fronts(c, 11, 75.2), last, sample_metrics());
     for (const char* part : {"model prediction, not a released recipe", "14 published", "2 illustrative",
-                             "errors shown are numerical only", "54.7 ± 0.4 nm", "gate, Si 240 nm",
-                             "polymer (grown)", "not cleared, 7.00 nm left"})
+                             "errors shown are numerical only", "54.7 ± 0.4", "gate, Si 240 nm",
+                             "polymer (grown)", "7.00 nm left", "bow: at most 4 nm"})
         CHECK(svg.find(part) != std::string::npos);
     CHECK(svg.find("http://") == svg.rfind("http://")); // the name space only: nothing is fetched
     const std::string png = png_of(svg, 2);
