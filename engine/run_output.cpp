@@ -14,7 +14,9 @@ namespace {
 
 constexpr double png_scale = 2;
 
-std::string json_text(const nlohmann::json& json) { return json.dump(2) + "\n"; }
+std::string json_text(const nlohmann::json& json) {
+    return json.dump(2) + "\n";
+}
 
 } // namespace
 
@@ -23,7 +25,8 @@ RunOutput::RunOutput(OutputFolder& folder, const Case& c) : folder_(folder), cas
 }
 
 void RunOutput::add_frame(const SurfaceState& state) {
-    const std::string file = fmt::format("{}/frame_{:04}.vtp", output_names::frames, series_.size());
+    const std::string file =
+        fmt::format("{}/frame_{:04}.vtp", output_names::frames, series_.size());
     folder_.write(file, vtp_text(case_, state));
     series_.push_back({state.time_s, file});
     folder_.write(output_names::series, pvd_text(series_));
@@ -32,7 +35,8 @@ void RunOutput::add_frame(const SurfaceState& state) {
 }
 
 Metrics RunOutput::finish(const RunResult& result) {
-    if (series_.empty() || result.last.time_s > series_.back().time_s) add_frame(result.last);
+    if (series_.empty() || result.last.time_s > series_.back().time_s)
+        add_frame(result.last);
     folder_.write(output_names::history, history_csv(case_, result.history));
     folder_.write(output_names::profile, profile_csv(case_, result.last));
     const Metrics metrics = measure(case_, result.last);

@@ -14,7 +14,7 @@ namespace rille::engine {
 /// Writes a run into its folder: frames as they come, everything else at the end. After every call
 /// the folder is valid as it stands, so an interrupted run leaves what it had.
 class RunOutput {
-  public:
+public:
     /// Writes the resolved case at once. Both arguments must outlive this object.
     RunOutput(OutputFolder&, const Case&);
 
@@ -24,7 +24,7 @@ class RunOutput {
     /// frame if it is later than the last one. Returns the metrics. May be called again.
     Metrics finish(const RunResult& result);
 
-  private:
+private:
     OutputFolder& folder_;
     const Case& case_;
     std::vector<SeriesEntry> series_;
