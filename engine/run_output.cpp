@@ -25,6 +25,10 @@ RunOutput::RunOutput(OutputFolder& folder, const Case& c) : folder_(folder), cas
 }
 
 void RunOutput::add_frame(const SurfaceState& state) {
+    if (!series_.empty() && state.time_s <= series_.back().time_s) {
+        series_.pop_back(); // a later view of the same instant replaces the earlier one
+        fronts_.pop_back();
+    }
     const std::string file =
         fmt::format("{}/frame_{:04}.vtp", output_names::frames, series_.size());
     folder_.write(file, vtp_text(case_, state));
