@@ -54,7 +54,10 @@ Metrics RunOutput::finish(const RunResult& result) {
     files.insert(std::upper_bound(files.begin(), files.end(), output_names::record),
                  output_names::record);
     files.erase(std::unique(files.begin(), files.end()), files.end());
-    folder_.write(output_names::record, json_text(record_json(case_, result.record, files)));
+    RunRecord record = result.record;
+    if (record.peak_memory_bytes == 0)
+        record.peak_memory_bytes = peak_memory_bytes();
+    folder_.write(output_names::record, json_text(record_json(case_, record, files)));
     return metrics;
 }
 
