@@ -194,7 +194,7 @@ TEST_CASE("neutrals in a closed trench", "[neutrals]") {
     // Source: computed (integral equation, 1e-8).
     // Tolerance: 52 independent bins, chi2/nu within 1 +- 4 sqrt(2/nu), largest pull < 4.5, mean
     // pull < 4/sqrt(n); standard errors < 1 %; values 2 % high must fail.
-    check(compare_all(trench, "closed_trench.csv", {1, 2, 5, 10}, stickings, 32));
+    check(compare_all(trench, "closed_trench.csv", {1, 2, 5, 10}, stickings, 20));
     const auto off = compare_all(trench, "closed_trench.csv", {1, 2}, stickings, 16, 1.02);
     CHECK_FALSE(tests::Pulls(off.pulls).agree());
 }
