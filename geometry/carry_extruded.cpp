@@ -23,10 +23,10 @@ struct Chain {
 };
 
 class ExtrudedCarrier {
-  public:
+public:
     explicit ExtrudedCarrier(const CarryTask& task)
-        : task_(task), from_(task.from), to_(task.to),
-          mean_(mean_length(task.to)), bins_(task.to.centre, 1.5 * mean_, task.period_x, 0) {
+        : task_(task), from_(task.from), to_(task.to), mean_(mean_length(task.to)),
+          bins_(task.to.centre, 1.5 * mean_, task.period_x, 0) {
         list_chains();
         move_vertices();
         locate();
@@ -37,10 +37,11 @@ class ExtrudedCarrier {
             f->value = f->carry == Carry::per_area ? amounts(f->value) : values(f->value);
     }
 
-  private:
+private:
     static double mean_length(const Surface& s) {
         double sum = 0;
-        for (double a : s.area) sum += a;
+        for (double a : s.area)
+            sum += a;
         return sum / s.size();
     }
 
@@ -49,7 +50,8 @@ class ExtrudedCarrier {
         chain_of_.resize(to_.size());
         longest_ = 0;
         for (int e = 0; e < static_cast<int>(to_.size()); ++e) {
-            if (e == 0 || to_.chain[e] != to_.chain[e - 1]) chains_.push_back({e, e, false, 0});
+            if (e == 0 || to_.chain[e] != to_.chain[e - 1])
+                chains_.push_back({e, e, false, 0});
             chain_of_[e] = static_cast<int>(chains_.size()) - 1;
             chains_.back().last = e + 1;
             arc_[e + 1] = arc_[e] + to_.area[e];
@@ -61,8 +63,8 @@ class ExtrudedCarrier {
         }
     }
 
-    /// Where the start and the end of each old element have moved to, so that neighbours stay joined
-    /// and both keep their distance.
+    /// Where the start and the end of each old element have moved to, so that neighbours stay
+    /// joined and both keep their distance.
     void move_vertices() {
         const int size = static_cast<int>(from_.size());
         start_.resize(size);
@@ -84,15 +86,18 @@ class ExtrudedCarrier {
         const Vec3 na = from_.normal[a], nb = from_.normal[b];
         const double ma = task_.moved[a], mb = task_.moved[b];
         const double c = na.dot(nb), determinant = 1 - c * c;
-        if (determinant < 0.05 && c > 0) return (na + nb) * (-(ma + mb) / (na + nb).length2());
-        if (determinant < 0.05) return (na * ma + nb * mb) * -0.5;
+        if (determinant < 0.05 && c > 0)
+            return (na + nb) * (-(ma + mb) / (na + nb).length2());
+        if (determinant < 0.05)
+            return (na * ma + nb * mb) * -0.5;
         return (na * (ma - c * mb) + nb * (mb - c * ma)) * (-1 / determinant);
     }
 
     Place place(const Vec3& p) const {
         Place best;
         double best2 = 1e300;
-        for (double radius = 1.5 * mean_; best.element < 0 || best2 > radius * radius; radius *= 2) {
+        for (double radius = 1.5 * mean_; best.element < 0 || best2 > radius * radius;
+             radius *= 2) {
             bins_.near(p, radius + longest_, [&](int e, const Vec3&) {
                 const Vec3 a = to_.vertices[to_.corners[e][0]], b = to_.vertices[to_.corners[e][1]];
                 const Vec3 along = b - a;
@@ -107,12 +112,14 @@ class ExtrudedCarrier {
                     best.arc = t >= 1 ? arc_[e + 1] : arc_[e] + t * to_.area[e];
                 }
             });
-            if (radius > 1e9 * mean_) break;
+            if (radius > 1e9 * mean_)
+                break;
         }
         return best;
     }
     Vec3 nearest(Vec3 d) const {
-        if (task_.period_x > 0) d.x -= task_.period_x * std::round(d.x / task_.period_x);
+        if (task_.period_x > 0)
+            d.x -= task_.period_x * std::round(d.x / task_.period_x);
         return d;
     }
 
@@ -129,28 +136,36 @@ class ExtrudedCarrier {
         }
         for (int e = 0; e < size; ++e) { // joined across the seam of a loop
             const int before = from_.previous[e];
-            if (before >= 0 && before != e - 1) high_[before] = low_[e];
+            if (before >= 0 && before != e - 1)
+                high_[before] = low_[e];
         }
     }
 
     /// The ends of a chain stay its ends.
     void snap(Place& p, bool start, bool end = false) const {
-        if (p.element < 0) return;
+        if (p.element < 0)
+            return;
         const Chain& c = chains_[p.chain];
-        if (c.closed) return;
-        if (start && p.element == c.first) p.arc = arc_[c.first];
-        if (end && p.element == c.last - 1) p.arc = arc_[c.last];
+        if (c.closed)
+            return;
+        if (start && p.element == c.first)
+            p.arc = arc_[c.first];
+        if (end && p.element == c.last - 1)
+            p.arc = arc_[c.last];
     }
 
     /// Signed length of the new chain that old element e covers; false if it was torn.
     bool covered(int e, double& length) const {
         const Place &a = low_[e], &b = high_[e];
-        if (a.chain != b.chain) return false;
+        if (a.chain != b.chain)
+            return false;
         const Chain& c = chains_[a.chain];
         length = b.arc - a.arc;
         if (c.closed) {
-            if (length > 0.5 * c.length) length -= c.length;
-            if (length < -0.5 * c.length) length += c.length;
+            if (length > 0.5 * c.length)
+                length -= c.length;
+            if (length < -0.5 * c.length)
+                length += c.length;
         }
         return std::fabs(length) <= 3 * from_.area[e] + 4 * std::fabs(task_.moved[e]) + 4 * mean_;
     }
@@ -160,8 +175,10 @@ class ExtrudedCarrier {
         for (int e = 0; e < static_cast<int>(old.size()); ++e) {
             double length = 0;
             if (!covered(e, length) || length == 0) {
-                const int j = covered(e, length) ? low_[e].element
-                                                 : place(from_.centre[e] - from_.normal[e] * task_.moved[e]).element;
+                const int j =
+                    covered(e, length)
+                        ? low_[e].element
+                        : place(from_.centre[e] - from_.normal[e] * task_.moved[e]).element;
                 now[j] += old[e] * (from_.area[e] / to_.area[j]);
                 continue;
             }
@@ -171,15 +188,19 @@ class ExtrudedCarrier {
     }
 
     /// Lays an old element's amount evenly on the stretch of new chain it covers.
-    void spread(int e, double value, const Place& start, double length, std::vector<double>& now) const {
+    void spread(int e, double value, const Place& start, double length,
+                std::vector<double>& now) const {
         const Chain& c = chains_[start.chain];
-        int j = static_cast<int>(std::upper_bound(arc_.begin() + c.first, arc_.begin() + c.last,
-                                                  start.arc) - arc_.begin()) - 1;
+        int j = static_cast<int>(
+                    std::upper_bound(arc_.begin() + c.first, arc_.begin() + c.last, start.arc) -
+                    arc_.begin()) -
+                1;
         double at = start.arc, rest = length;
         while (rest > 0) {
             if (at >= arc_[j + 1]) { // next element, round a loop
                 if (++j >= c.last) {
-                    if (!c.closed) break;
+                    if (!c.closed)
+                        break;
                     j = c.first;
                     at = arc_[j];
                 }
@@ -191,22 +212,27 @@ class ExtrudedCarrier {
             at = arc_[j + 1];
             rest = ends_here ? 0 : rest - overlap;
         }
-        if (rest > 0) now[c.last - 1] += value * (from_.area[e] / to_.area[c.last - 1]) * (rest / length);
+        if (rest > 0)
+            now[c.last - 1] += value * (from_.area[e] / to_.area[c.last - 1]) * (rest / length);
     }
 
     std::vector<double> values(const std::vector<double>& old) const {
         std::vector<std::vector<std::pair<double, int>>> knots(chains_.size());
         for (int e = 0; e < static_cast<int>(old.size()); ++e) {
             double length = 0;
-            if (!covered(e, length)) continue;
+            if (!covered(e, length))
+                continue;
             const Chain& c = chains_[low_[e].chain];
             double arc = length == high_[e].arc - low_[e].arc ? 0.5 * (low_[e].arc + high_[e].arc)
                                                               : low_[e].arc + 0.5 * length;
-            if (c.closed && arc >= arc_[c.last]) arc -= c.length;
-            if (c.closed && arc < arc_[c.first]) arc += c.length;
+            if (c.closed && arc >= arc_[c.last])
+                arc -= c.length;
+            if (c.closed && arc < arc_[c.first])
+                arc += c.length;
             knots[low_[e].chain].push_back({arc, e});
         }
-        for (auto& k : knots) std::stable_sort(k.begin(), k.end());
+        for (auto& k : knots)
+            std::stable_sort(k.begin(), k.end());
         std::vector<double> now(to_.size());
         for (int j = 0; j < static_cast<int>(now.size()); ++j)
             now[j] = interpolate(knots[chain_of_[j]], chains_[chain_of_[j]],
@@ -216,14 +242,17 @@ class ExtrudedCarrier {
 
     double interpolate(const std::vector<std::pair<double, int>>& knots, const Chain& c, double arc,
                        const Vec3& centre, const std::vector<double>& old) const {
-        if (knots.empty()) return old[nearest_old(centre)];
+        if (knots.empty())
+            return old[nearest_old(centre)];
         const int size = static_cast<int>(knots.size());
-        int after = static_cast<int>(std::lower_bound(knots.begin(), knots.end(),
-                                                      std::pair<double, int>{arc, -1}) - knots.begin());
+        int after = static_cast<int>(
+            std::lower_bound(knots.begin(), knots.end(), std::pair<double, int>{arc, -1}) -
+            knots.begin());
         int before = after - 1;
         double low = 0, high = 0;
         if (after == size || before < 0) {
-            if (!c.closed) return old[knots[after == size ? size - 1 : 0].second];
+            if (!c.closed)
+                return old[knots[after == size ? size - 1 : 0].second];
             low = knots[size - 1].first - (before < 0 ? c.length : 0);
             high = knots[0].first + (before < 0 ? 0 : c.length);
             before = size - 1;
@@ -240,7 +269,8 @@ class ExtrudedCarrier {
         int best = 0;
         double best2 = 1e300;
         for (int e = 0; e < static_cast<int>(from_.size()); ++e) {
-            const double d2 = nearest(from_.centre[e] - from_.normal[e] * task_.moved[e] - p).length2();
+            const double d2 =
+                nearest(from_.centre[e] - from_.normal[e] * task_.moved[e] - p).length2();
             if (d2 < best2) {
                 best2 = d2;
                 best = e;
@@ -262,6 +292,8 @@ class ExtrudedCarrier {
 
 } // namespace
 
-void carry_extruded(const CarryTask& task) { ExtrudedCarrier(task).run(); }
+void carry_extruded(const CarryTask& task) {
+    ExtrudedCarrier(task).run();
+}
 
 } // namespace rille::geometry

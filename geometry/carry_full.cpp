@@ -18,10 +18,10 @@ constexpr double wide = 3.0;   ///< [mean element sizes] corrections are spread 
 /// then lacks or has too much is spread over the neighbourhood in proportion to what lies there, so
 /// that the integral is exact and nothing turns negative.
 class FullCarrier {
-  public:
+public:
     explicit FullCarrier(const CarryTask& task)
-        : task_(task), from_(task.from), to_(task.to), size_(mean_size(task.to)),
-          foot_(feet(task)), old_bins_(foot_, size_, task.period_x, task.period_y),
+        : task_(task), from_(task.from), to_(task.to), size_(mean_size(task.to)), foot_(feet(task)),
+          old_bins_(foot_, size_, task.period_x, task.period_y),
           new_bins_(task.to.centre, size_, task.period_x, task.period_y) {
         weigh();
         measure_shares();
@@ -30,15 +30,17 @@ class FullCarrier {
     void run() {
         for (SurfaceField* f : task_.fields) {
             std::vector<double> now = means(f->value);
-            if (f->carry == Carry::per_area) conserve(f->value, now);
+            if (f->carry == Carry::per_area)
+                conserve(f->value, now);
             f->value = std::move(now);
         }
     }
 
-  private:
+private:
     static double mean_size(const Surface& s) {
         double sum = 0;
-        for (double a : s.area) sum += a;
+        for (double a : s.area)
+            sum += a;
         return std::sqrt(sum / s.size());
     }
     static std::vector<Vec3> feet(const CarryTask& task) {
@@ -51,7 +53,8 @@ class FullCarrier {
 
     double weight(int e, int j, const Vec3& d, double radius) const {
         const double facing = from_.normal[e].dot(to_.normal[j]);
-        if (facing <= 0) return 0;
+        if (facing <= 0)
+            return 0;
         const double t = 1 - d.length() / (radius * size_);
         return t <= 0 ? 0 : facing * t * t;
     }
@@ -65,12 +68,15 @@ class FullCarrier {
                 double sum = 0;
                 int same = -1;
                 old_bins_.near(to_.centre[j], narrow * size_, [&](int e, const Vec3& d) {
-                    if (d == Vec3(0, 0, 0) && from_.normal[e] == to_.normal[j]) same = e;
+                    if (d == Vec3(0, 0, 0) && from_.normal[e] == to_.normal[j])
+                        same = e;
                     sum += weight(e, static_cast<int>(j), d, narrow);
                 });
                 total_[j] = sum;
-                if (same >= 0) single_[j] = same;
-                else if (!(sum > 1e-9)) single_[j] = old_bins_.nearest(to_.centre[j]);
+                if (same >= 0)
+                    single_[j] = same;
+                else if (!(sum > 1e-9))
+                    single_[j] = old_bins_.nearest(to_.centre[j]);
             }
         });
     }
@@ -82,11 +88,13 @@ class FullCarrier {
             for (std::size_t e = first; e < last; ++e)
                 new_bins_.near(foot_[e], narrow * size_, [&](int j, const Vec3& d) {
                     if (single_[j] < 0)
-                        share_[e] += to_.area[j] * weight(static_cast<int>(e), j, d, narrow) / total_[j];
+                        share_[e] +=
+                            to_.area[j] * weight(static_cast<int>(e), j, d, narrow) / total_[j];
                 });
         });
         for (std::size_t j = 0; j < to_.size(); ++j)
-            if (single_[j] >= 0) share_[single_[j]] += to_.area[j];
+            if (single_[j] >= 0)
+                share_[single_[j]] += to_.area[j];
     }
 
     std::vector<double> means(const std::vector<double>& old) const {
@@ -112,7 +120,8 @@ class FullCarrier {
         over_ranges(from_.size(), grain, [&](std::size_t first, std::size_t last) {
             for (std::size_t e = first; e < last; ++e) {
                 excess[e] = old[e] * (from_.area[e] - share_[e]);
-                if (excess[e] == 0) continue;
+                if (excess[e] == 0)
+                    continue;
                 double sum = 0;
                 new_bins_.near(foot_[e], wide * size_, [&](int j, const Vec3& d) {
                     sum += weight(static_cast<int>(e), j, d, wide) * to_.area[j] * now[j];
@@ -127,7 +136,8 @@ class FullCarrier {
                 old_bins_.near(to_.centre[j], wide * size_, [&](int e, const Vec3& d) {
                     sum += scale[e] * weight(e, static_cast<int>(j), d, wide);
                 });
-                if (sum != 0) next[j] = now[j] + sum * now[j];
+                if (sum != 0)
+                    next[j] = now[j] + sum * now[j];
             }
         });
         for (std::size_t e = 0; e < from_.size(); ++e) // nothing near to share it with
@@ -141,13 +151,18 @@ class FullCarrier {
 
     /// Overshoots below zero are rare; lifting them is paid for by all in proportion.
     void keep_positive(const std::vector<double>& old, std::vector<double>& now) const {
-        if (std::none_of(now.begin(), now.end(), [](double v) { return v < 0; })) return;
-        if (std::any_of(old.begin(), old.end(), [](double v) { return v < 0; })) return;
+        if (std::none_of(now.begin(), now.end(), [](double v) { return v < 0; }))
+            return;
+        if (std::any_of(old.begin(), old.end(), [](double v) { return v < 0; }))
+            return;
         double before = 0, after = 0;
-        for (std::size_t e = 0; e < old.size(); ++e) before += old[e] * from_.area[e];
-        for (std::size_t j = 0; j < now.size(); ++j) after += (now[j] = std::max(now[j], 0.0)) * to_.area[j];
+        for (std::size_t e = 0; e < old.size(); ++e)
+            before += old[e] * from_.area[e];
+        for (std::size_t j = 0; j < now.size(); ++j)
+            after += (now[j] = std::max(now[j], 0.0)) * to_.area[j];
         if (after > 0)
-            for (double& v : now) v *= before / after;
+            for (double& v : now)
+                v *= before / after;
     }
 
     const CarryTask& task_;
@@ -161,6 +176,8 @@ class FullCarrier {
 
 } // namespace
 
-void carry_full(const CarryTask& task) { FullCarrier(task).run(); }
+void carry_full(const CarryTask& task) {
+    FullCarrier(task).run();
+}
 
 } // namespace rille::geometry

@@ -14,7 +14,7 @@ namespace rille::geometry {
 
 /// Width 0 along x or y: not periodic there.
 class ElementBins {
-  public:
+public:
     ElementBins(const std::vector<Vec3>& points, double size, double period_x, double period_y)
         : points_(points), period_{period_x, period_y, 0} {
         low_ = Vec3(std::numeric_limits<double>::max());
@@ -24,7 +24,8 @@ class ElementBins {
                 low_[a] = std::min(low_[a], p[a]);
                 high[a] = std::max(high[a], p[a]);
             }
-        if (points.empty()) low_ = high = Vec3(0, 0, 0);
+        if (points.empty())
+            low_ = high = Vec3(0, 0, 0);
         for (;; size *= 1.5) {
             double total = 1;
             for (int a = 0; a < 3; ++a) {
@@ -34,30 +35,36 @@ class ElementBins {
                 size_[a] = period_[a] > 0 ? extent / count_[a] : size;
                 total *= count_[a];
             }
-            if (total < 8e6) break;
+            if (total < 8e6)
+                break;
         }
         start_.assign(static_cast<std::size_t>(count_[0]) * count_[1] * count_[2] + 1, 0);
         std::vector<int> bin(points.size());
         for (std::size_t n = 0; n < points.size(); ++n) {
-            bin[n] = index(coordinate(points[n], 0), coordinate(points[n], 1), coordinate(points[n], 2));
+            bin[n] =
+                index(coordinate(points[n], 0), coordinate(points[n], 1), coordinate(points[n], 2));
             ++start_[bin[n] + 1];
         }
-        for (std::size_t b = 1; b < start_.size(); ++b) start_[b] += start_[b - 1];
+        for (std::size_t b = 1; b < start_.size(); ++b)
+            start_[b] += start_[b - 1];
         std::vector<int> fill(start_.begin(), start_.end() - 1);
         order_.resize(points.size());
-        for (std::size_t n = 0; n < points.size(); ++n) order_[fill[bin[n]]++] = static_cast<int>(n);
+        for (std::size_t n = 0; n < points.size(); ++n)
+            order_[fill[bin[n]]++] = static_cast<int>(n);
     }
 
     /// b - a through the nearest image.
     Vec3 between(const Vec3& a, const Vec3& b) const {
         Vec3 d = b - a;
         for (int axis = 0; axis < 2; ++axis)
-            if (period_[axis] > 0) d[axis] -= period_[axis] * std::round(d[axis] / period_[axis]);
+            if (period_[axis] > 0)
+                d[axis] -= period_[axis] * std::round(d[axis] / period_[axis]);
         return d;
     }
 
     /// visit(n, displacement) for every point within `radius` of p, in a fixed order.
-    template <class Visit> void near(const Vec3& p, double radius, const Visit& visit) const {
+    template <class Visit>
+    void near(const Vec3& p, double radius, const Visit& visit) const {
         std::array<int, 3> from, to;
         for (int a = 0; a < 3; ++a) {
             from[a] = cell(p[a] - radius, a);
@@ -75,7 +82,8 @@ class ElementBins {
                     const int b = index(wrap(x, 0), wrap(y, 1), z);
                     for (int m = start_[b]; m < start_[b + 1]; ++m) {
                         const Vec3 d = between(p, points_[order_[m]]);
-                        if (d.length2() <= radius * radius) visit(order_[m], d);
+                        if (d.length2() <= radius * radius)
+                            visit(order_[m], d);
                     }
                 }
     }
@@ -83,7 +91,8 @@ class ElementBins {
     /// Nearest point, the lower index of two; -1 if there is none.
     int nearest(const Vec3& p) const {
         int best = -1;
-        if (points_.empty()) return best;
+        if (points_.empty())
+            return best;
         double best2 = std::numeric_limits<double>::max();
         for (double radius = std::max({size_[0], size_[1], size_[2]}); best < 0; radius *= 2)
             near(p, radius, [&](int n, const Vec3& d) {
@@ -95,7 +104,7 @@ class ElementBins {
         return best;
     }
 
-  private:
+private:
     int cell(double v, int a) const {
         return static_cast<int>(std::floor(std::clamp((v - low_[a]) / size_[a], -1e8, 1e8)));
     }

@@ -26,12 +26,13 @@ Domain domain(bool full, int cells, Sides sides) {
 
 double integral(const Surface& s, const std::vector<double>& v) {
     double sum = 0;
-    for (std::size_t e = 0; e < s.size(); ++e) sum += s.area[e] * v[e];
+    for (std::size_t e = 0; e < s.size(); ++e)
+        sum += s.area[e] * v[e];
     return sum;
 }
 
-void carry(const Surface& from, const Surface& to, const std::vector<double>& moved, const Domain& d,
-           std::vector<SurfaceField*> fields) {
+void carry(const Surface& from, const Surface& to, const std::vector<double>& moved,
+           const Domain& d, std::vector<SurfaceField*> fields) {
     carry_fields(from, to, moved, d.width_x(), d.width_y(), d.sides == Sides::periodic, fields);
 }
 
@@ -40,7 +41,8 @@ double deviation(const Surface& s, const std::vector<double>& v, double value,
                  const std::function<bool(const Vec3&)>& skip) {
     double worst = 0;
     for (std::size_t e = 0; e < s.size(); ++e)
-        if (!skip(s.centre[e])) worst = std::max(worst, std::fabs(v[e] / value - 1));
+        if (!skip(s.centre[e]))
+            worst = std::max(worst, std::fabs(v[e] / value - 1));
     return worst;
 }
 
@@ -49,7 +51,8 @@ Distance pit(const Vec3& at, bool cusp) {
     return [=](const Vec3& q) {
         const Vec3 p = q - at;
         const auto arc = [](double x, double z) { return 18 - std::hypot(x, z); };
-        if (!cusp) return std::max(arc(p.x, p.z), p.z);
+        if (!cusp)
+            return std::max(arc(p.x, p.z), p.z);
         return std::max(std::max(arc(p.x - 14, p.z), arc(p.x + 14, p.z)), p.z);
     };
 }
@@ -70,14 +73,16 @@ TEST_CASE("a grown film on an idle front keeps its thickness and mass", "[carry]
             cover.value.push_back(std::cos(0.3 * e));
         }
         const auto film_before = film.value, cover_before = cover.value;
-        for (int n = 0; n < 1000; ++n) carry(s, s, idle, d, {&film, &cover});
+        for (int n = 0; n < 1000; ++n)
+            carry(s, s, idle, d, {&film, &cover});
         CHECK(film.value == film_before);
         CHECK(cover.value == cover_before);
         // An element elsewhere has moved: those that have not keep their bits all the same.
         Surface other = s;
         other.vertices.front().z += 1e-3;
         other.centre.front().z += 5e-4;
-        for (int n = 0; n < 1000; ++n) carry(s, other, idle, d, {&film, &cover});
+        for (int n = 0; n < 1000; ++n)
+            carry(s, other, idle, d, {&film, &cover});
         for (std::size_t e = 3; e < s.size(); ++e) {
             CHECK(film.value[e] == film_before[e]);
             CHECK(cover.value[e] == cover_before[e]);
@@ -96,7 +101,9 @@ TEST_CASE("a grown film on a moving front", "[carry]") {
         const auto place = [](int n) {
             return Vec3(0.3 + 0.3 * std::sin(1.7 * n), 0, 0.2 + 0.5 * std::sin(0.9 * n));
         };
-        const auto front = [&](int n) { return extract_surface(make_band(d, pit(place(n), cusp), -22, 3)); };
+        const auto front = [&](int n) {
+            return extract_surface(make_band(d, pit(place(n), cusp), -22, 3));
+        };
         Surface s = front(0);
         SurfaceField film{"film", Carry::per_area, std::vector<double>(s.size(), 0.5)};
         const double mass = integral(s, film.value);
@@ -105,7 +112,8 @@ TEST_CASE("a grown film on a moving front", "[carry]") {
             const Vec3 step = place(n % 201) - place(n - 1);
             const Surface next = front(n % 201);
             std::vector<double> moved(s.size());
-            for (std::size_t e = 0; e < s.size(); ++e) moved[e] = -step.dot(s.normal[e]);
+            for (std::size_t e = 0; e < s.size(); ++e)
+                moved[e] = -step.dot(s.normal[e]);
             const double before = integral(s, film.value);
             carry(s, next, moved, d, {&film});
             worst_call = std::max(worst_call, std::fabs(integral(next, film.value) / before - 1));
@@ -144,17 +152,22 @@ TEST_CASE("films merge at concave and spread at convex places", "[carry]") {
         for (const double moved : {0.4, -0.4}) {
             const Domain d = domain(full, 40, Sides::periodic);
             const double radius = 12, after = radius - moved;
-            const auto ball = [](double r) { return [r](const Vec3& p) { return (p - Vec3(0.2, 0, 0.1)).length() - r; }; };
+            const auto ball = [](double r) {
+                return [r](const Vec3& p) { return (p - Vec3(0.2, 0, 0.1)).length() - r; };
+            };
             const Surface a = extract_surface(make_band(d, ball(radius), -13, 13));
             const Surface b = extract_surface(make_band(d, ball(after), -13, 13));
             SurfaceField film{"film", Carry::per_area, std::vector<double>(a.size(), 0.5)};
             SurfaceField height{"height", Carry::intensive, {}};
-            for (const Vec3& c : a.centre) height.value.push_back(c.z / radius);
+            for (const Vec3& c : a.centre)
+                height.value.push_back(c.z / radius);
             carry(a, b, std::vector<double>(a.size(), moved), d, {&film, &height});
-            CHECK(integral(b, film.value) == Approx(0.5 * integral(a, std::vector<double>(a.size(), 1.0))).epsilon(1e-12));
+            CHECK(integral(b, film.value) ==
+                  Approx(0.5 * integral(a, std::vector<double>(a.size(), 1.0))).epsilon(1e-12));
             const double expected = 0.5 * std::pow(radius / after, full ? 2 : 1);
             double square = 0;
-            for (double v : film.value) square += (v / expected - 1) * (v / expected - 1);
+            for (double v : film.value)
+                square += (v / expected - 1) * (v / expected - 1);
             CAPTURE(full, moved);
             CHECK(std::sqrt(square / b.size()) < (full ? 0.05 : 0.01));
             double worst = 0;
@@ -169,12 +182,17 @@ TEST_CASE("films on a moving full front", "[carry]") {
     // Tolerance: mass 1e-12 per call; thickness 12 % root mean square
     // after 40 moves (8 % measured, single small elements up to 41 %).
     const Domain d = domain(true, 36, Sides::periodic);
-    const auto ball = [](const Vec3& c) { return [c](const Vec3& p) {
-        Vec3 v = p - c;
-        v.x -= 36 * std::round(v.x / 36);
-        v.y -= 36 * std::round(v.y / 36);
-        return v.length() - 12; }; };
-    const auto place = [](int n) { return Vec3(0.4 * std::sin(1.7 * n), 0.3 * std::sin(2.1 * n), 0.4 * std::sin(0.9 * n)); };
+    const auto ball = [](const Vec3& c) {
+        return [c](const Vec3& p) {
+            Vec3 v = p - c;
+            v.x -= 36 * std::round(v.x / 36);
+            v.y -= 36 * std::round(v.y / 36);
+            return v.length() - 12;
+        };
+    };
+    const auto place = [](int n) {
+        return Vec3(0.4 * std::sin(1.7 * n), 0.3 * std::sin(2.1 * n), 0.4 * std::sin(0.9 * n));
+    };
     Surface s = extract_surface(make_band(d, ball({0, 0, 0}), -13, 13));
     SurfaceField film{"film", Carry::per_area, std::vector<double>(s.size(), 0.5)};
     const double mass = integral(s, film.value);
@@ -183,7 +201,8 @@ TEST_CASE("films on a moving full front", "[carry]") {
         const Vec3 at = place(n % 41), step = at - place(n - 1);
         const Surface next = extract_surface(make_band(d, ball(at), at.z - 13, at.z + 13));
         std::vector<double> moved(s.size());
-        for (std::size_t e = 0; e < s.size(); ++e) moved[e] = -step.dot(s.normal[e]);
+        for (std::size_t e = 0; e < s.size(); ++e)
+            moved[e] = -step.dot(s.normal[e]);
         const double before = integral(s, film.value);
         carry(s, next, moved, d, {&film});
         worst_call = std::max(worst_call, std::fabs(integral(next, film.value) / before - 1));
@@ -191,9 +210,11 @@ TEST_CASE("films on a moving full front", "[carry]") {
     }
     const double off = deviation(s, film.value, 0.5, [](const Vec3&) { return false; });
     double square = 0;
-    for (double v : film.value) square += (v / 0.5 - 1) * (v / 0.5 - 1);
+    for (double v : film.value)
+        square += (v / 0.5 - 1) * (v / 0.5 - 1);
     WARN("full: mass " << integral(s, film.value) / mass - 1 << ", worst call " << worst_call
-                       << ", thickness off by at most " << off << ", rms " << std::sqrt(square / s.size()));
+                       << ", thickness off by at most " << off << ", rms "
+                       << std::sqrt(square / s.size()));
     CHECK(worst_call < 1e-12);
     CHECK(std::sqrt(square / s.size()) < 0.12);
     CHECK(*std::min_element(film.value.begin(), film.value.end()) > 0);

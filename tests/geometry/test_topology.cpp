@@ -13,7 +13,8 @@ namespace {
 
 const IsolatedPart* find(const std::vector<IsolatedPart>& parts, IsolatedPart::Kind kind) {
     for (const auto& p : parts)
-        if (p.kind == kind) return &p;
+        if (p.kind == kind)
+            return &p;
     return nullptr;
 }
 
@@ -26,7 +27,8 @@ TEST_CASE("a void and a detached piece are found", "[topology]") {
     for (const Symmetry symmetry : {Symmetry::extruded, Symmetry::full})
         for (const Sides sides : {Sides::mirror, Sides::periodic})
             for (const double x : {3.3, 23.0}) { // inside; over a periodic side
-                if (sides == Sides::mirror && x > 10) continue;
+                if (sides == Sides::mirror && x > 10)
+                    continue;
                 Domain d;
                 d.symmetry = symmetry;
                 d.sides = sides;
@@ -35,7 +37,8 @@ TEST_CASE("a void and a detached piece are found", "[topology]") {
                 const Vec3 hole(x, symmetry == Symmetry::full ? -2.2 : 0, -12.3), drop(-6, 0, 12.1);
                 const auto away = [&](Vec3 p, const Vec3& c) {
                     Vec3 v = p - c;
-                    if (sides == Sides::periodic) v.x -= 48 * std::round(v.x / 48);
+                    if (sides == Sides::periodic)
+                        v.x -= 48 * std::round(v.x / 48);
                     return v.length();
                 };
                 const auto shape = [&](const Vec3& p) {
@@ -77,6 +80,7 @@ TEST_CASE("layers across the whole period count as parts", "[topology]") {
 TEST_CASE("an open surface has no isolated parts", "[topology]") {
     Domain d;
     d.cells_x = 20;
-    const Surface s = extract_surface(make_band(d, [](const Vec3& p) { return p.z; }, -1, 1));
+    const Surface s = extract_surface(make_band(
+        d, [](const Vec3& p) { return p.z; }, -1, 1));
     CHECK(find_isolated_parts(d, s).empty());
 }
