@@ -279,7 +279,7 @@ void SegmentCaster::find_rectangles() {
 /// Moves the frame to the image in which the ray is at t.
 void SegmentCaster::fold_into_period(Ray& ray, double t) const {
     const double x = ray.ox + t * ray.dx - x_min_;
-    if (x >= 0 && x < width_)
+    if (x >= 0 && x <= width_)
         return;
     const double image = std::floor(x / width_);
     if (image == 0)
