@@ -82,8 +82,7 @@ class FullGather {
             if (tables_.tallies()[m].ion == ion) tabulate(static_cast<int>(m), e, arrivals);
     }
 
-    /// One shadow ray per direction. A direction behind the element's own plane matters only for
-    /// turned normals; it starts a tenth of a cell off the plane.
+    /// One ray per direction.
     std::vector<Arrival> trace(int e, int ion) {
         const IonSource& source = tables_.ions()[ion];
         const Vec3 own = surface_.normal[e], mean = normal_[e];
@@ -99,16 +98,37 @@ class FullGather {
                     source.distribution.sample(points.four(static_cast<std::uint32_t>(k)));
                 const Vec3 from = -ion_sample.direction;
                 const double facing = from.dot(own);
-                const Vec3 start = facing > 0
-                                       ? surface_.centre[e]
-                                       : surface_.centre[e] + own * (0.1 * domain_.spacing);
-                if (caster_.trace(start, from, e).kind != Hit::Kind::open) continue;
+                const bool seen = facing > 0
+                                      ? caster_.trace(surface_.centre[e], from, e).kind ==
+                                            Hit::Kind::open
+                                      : reached_from_behind(surface_.centre[e], from);
+                if (!seen) continue;
                 if (facing > 0) gathered_.flux[ion][e] += share * facing / from.z;
                 arrivals.push_back({from.z, from.x * hx + from.y * hy, share / from.z,
                                     ion_sample.energy_ev, b});
             }
         }
         return arrivals;
+    }
+
+    /// A direction behind the element's own plane matters only for turned normals, next to a convex
+    /// edge: an ion from there must get within a cell and a half of the element.
+    bool reached_from_behind(const Vec3& centre, const Vec3& from) const {
+        const double path = (caster_.z_open() - centre.z) / from.z;
+        Vec3 origin = centre + from * path, direction = -from;
+        fold(origin.x, direction.x, domain_.x_min(), domain_.width_x());
+        fold(origin.y, direction.y, domain_.y_min(), domain_.width_y());
+        const Hit hit = caster_.trace(origin, direction, -1);
+        return hit.kind == Hit::Kind::surface && hit.distance > path - 1.5 * domain_.spacing;
+    }
+    void fold(double& at, double& direction, double low, double width) const {
+        const double periods = domain_.sides == geometry::Sides::mirror ? 2 * width : width;
+        at -= low + periods * std::floor((at - low) / periods);
+        if (at > width) {
+            at = 2 * width - at;
+            direction = -direction;
+        }
+        at += low;
     }
 
     void tabulate(int m, int e, const std::vector<Arrival>& arrivals) {

@@ -20,19 +20,24 @@ namespace {
 constexpr int layered_row = -2;      ///< marks cells whose row depends on where the front is
 constexpr double layer_reach = 0.6;  ///< [cells] more than any sub-step moves
 constexpr double refresh_move = 0.75; ///< [cells] nearest elements and band hold for this far
+constexpr double resting_share = 0.5; ///< a wall rests if slower than this share of the front beside it
 constexpr double edge_margin = 1.4;  ///< [cells] the contour may come nearer the edge of the band
 
-/// A cell near an interface or a grown film: where its foot was when phi was phi0.
+/// A cell near an interface or a grown film, or beside a wall that rests: where its foot was when phi
+/// was phi0.
 struct LayeredCell {
     int cell = 0;
-    Vec3 foot;
+    Foot foot;
     double phi0 = 0;
+    unsigned resting = 0; ///< sides (bits) whose neighbour belongs to a wall that rests
+    unsigned unseen = 0;  ///< sides behind an interface that the front runs along
+    unsigned beside = 0;  ///< sides whose neighbour is nearer to a resting wall than to this front
     Layers layers;
 };
 
-struct LargestSpeeds {
-    double waves = 0; ///< sum of the dissipation coefficients [nm/s]
-    double front = 0; ///< |rate| next to the contour [nm/s]
+struct Speed {
+    double waves = 0; ///< sum of |dH/dp| along the axes [nm/s]
+    double rate = 0;  ///< of the front along its normal [nm/s]
 };
 
 /// One call of `advance`.
@@ -42,7 +47,7 @@ class Advance {
             GrownFilms& films, const std::vector<int>& growth_film, const AdvanceLimits& limits)
         : front_(front), band_(front.band()), surface_(surface), tables_(rates), films_(films),
           growth_film_(growth_film), limits_(limits),
-          finder_(band_, surface, rates, tables_, stack, films),
+          finder_(band_, rates, tables_, stack, films),
           extruded_(band_.domain.extruded()), h_(band_.domain.spacing) {
         report_.moved.assign(surface.size(), 0.0);
     }
@@ -53,14 +58,17 @@ class Advance {
     void refresh();
     void classify_cells(const ClosestElements&);
     void classify_elements();
-    Slopes slopes(const double* phi, std::size_t c) const {
-        return extruded_ ? slopes_2d(band_, phi, c, 1 / h_) : slopes_3d(band_, phi, c, 1 / h_);
+    unsigned resting_sides(std::size_t c) const;
+    Slopes special_slopes(const double* phi, const LayeredCell&) const;
+    Slopes slopes(const double* phi, std::size_t c, unsigned unseen = 0) const {
+        return extruded_ ? slopes_2d(band_, phi, c, 1 / h_, unseen)
+                         : slopes_3d(band_, phi, c, 1 / h_, unseen);
     }
-    double change(const Slopes&, int row, std::array<double, 3>& a, double& rate) const;
+    double change(const Slopes&, int row, Speed&) const;
     double layered_change(const Slopes&, const Layers&, double dt) const;
-    LargestSpeeds first_stage();
-    void find_layers(LayeredCell&, LargestSpeeds&);
-    double choose_step(const LargestSpeeds&) const;
+    Speed first_stage();
+    void find_layers(LayeredCell&, Speed&);
+    double choose_step(const Speed&) const;
     void step(double dt);
     void move_elements(double dt);
     void take_from_films(int e, double dt);
@@ -82,7 +90,7 @@ class Advance {
     std::vector<LayeredCell> layered_;
     std::vector<int> layered_elements_;
     std::vector<Tilt> element_tilt_;
-    std::vector<double> element_rate_;
+    std::vector<double> element_rate_, own_rate_; ///< own: before films are peeled
 };
 
 /// Nearest elements, redistancing and rows for the present band; `surface` displaced by `moved`.
@@ -95,8 +103,8 @@ void Advance::refresh() {
     // Nothing of the front is left near such cells: they drop out of the band.
     for (std::size_t c = 0; c < band_.size(); ++c)
         if (closest.element[c] < 0) band_.phi[c] = std::copysign(4 * h_, band_.phi[c]);
-    classify_cells(closest);
     classify_elements();
+    classify_cells(closest);
     slope_.assign(band_.size(), 0.0);
     next_ = band_.phi;
     moved_since_refresh_ = 0;
@@ -111,10 +119,10 @@ void Advance::classify_cells(const ClosestElements& closest) {
             const int e = element_[c];
             if (e < 0) continue;
             const Band::Cell& cell = band_.cells[c];
-            const Vec3 p = band_.domain.node(cell.i, cell.j, cell.k), foot = closest.foot[c];
-            const double z = 0.5 * (p.z + foot.z), spread = 0.5 * std::fabs(p.z - foot.z);
-            const bool near = finder_.near(e, Vec3(0, 0, z), reach + spread);
-            row_[c] = near ? layered_row : finder_.row_below(e, foot);
+            const double z = (cell.k + 0.5) * h_, z_foot = closest.foot[c].z;
+            const double middle = 0.5 * (z + z_foot), spread = 0.5 * std::fabs(z - z_foot);
+            if (finder_.near(e, middle, reach + spread) || resting_sides(c)) row_[c] = layered_row;
+            else row_[c] = finder_.row_below(e, {closest.foot[c], -surface_.normal[e], false});
         }
     });
     layered_.clear();
@@ -122,9 +130,27 @@ void Advance::classify_cells(const ClosestElements& closest) {
         if (row_[c] == layered_row) {
             layered_.emplace_back();
             layered_.back().cell = static_cast<int>(c);
-            layered_.back().foot = closest.foot[c];
+            const Band::Cell& cell = band_.cells[c];
+            layered_.back().foot =
+                foot_of(band_.domain.node(cell.i, cell.j, cell.k), band_.phi[c], closest.foot[c],
+                        surface_.normal[element_[c]], h_);
             layered_.back().phi0 = band_.phi[c];
+            layered_.back().resting = resting_sides(c);
         }
+}
+
+/// Sides where the front of cell c meets one that turns by more than 45 degrees and rests, or nearly.
+unsigned Advance::resting_sides(std::size_t c) const {
+    const int e = element_[c];
+    const double rate = own_rate_[e];
+    if (rate <= 0) return 0;
+    unsigned sides = 0;
+    for (int side = 0; side < 6; ++side) {
+        const int n = band_.neighbour[c][side], other = n < 0 ? -1 : element_[n];
+        if (other < 0 || other == e || std::fabs(own_rate_[other]) > resting_share * rate) continue;
+        if (surface_.normal[e].dot(surface_.normal[other]) < 0.7) sides |= 1u << side;
+    }
+    return sides;
 }
 
 void Advance::classify_elements() {
@@ -137,43 +163,60 @@ void Advance::classify_elements() {
         const Vec3 p = surface_.centre[e] - n * report_.moved[e];
         const int id = static_cast<int>(e);
         element_tilt_[e] = tilt_of(extruded_, n.x, n.y, n.z);
-        const int row = finder_.row_below(id, p);
+        const int row = finder_.row_below(id, {p, -n, false});
         element_rate_[e] = tables_.rate(row, element_tilt_[e].angle);
         // Growth starts a film, so such elements are layered too.
-        if (element_rate_[e] < 0 || finder_.near(id, p, reach)) layered_elements_.push_back(id);
+        if (element_rate_[e] < 0 || finder_.near(id, p.z, reach)) layered_elements_.push_back(id);
     }
+    own_rate_ = element_rate_;
     for (const int e : layered_elements_) element_rate_[e] = 0;
 }
 
 /// dphi/dt = R(n) |grad phi| + sum of a (slope+ - slope-) / 2: the solid (phi < 0) recedes at R.
-double Advance::change(const Slopes& s, int row, std::array<double, 3>& a, double& rate) const {
+/// Where R is the same for all normals Godunov's flux needs no dissipation.
+double Advance::change(const Slopes& s, int row, Speed& speed) const {
+    if (tables_.constant(row)) {
+        speed.rate = tables_.rate(row, 0);
+        const double steep = upwind_steepness(s, speed.rate > 0, speed.waves);
+        speed.waves *= std::fabs(speed.rate);
+        return speed.rate * steep;
+    }
     const double gx = s.mean(0), gy = s.mean(1), gz = s.mean(2);
-    const double angle = tables_.constant(row) ? 0.0 : tilt_of(extruded_, gx, gy, gz).angle;
-    rate = tables_.rate(row, angle);
-    a = dissipation(tables_, row, extruded_, s);
-    double sum = rate * std::sqrt(gx * gx + gy * gy + gz * gz);
+    speed.rate = tables_.rate(row, tilt_of(extruded_, gx, gy, gz).angle);
+    const std::array<double, 3> a = dissipation(tables_, row, extruded_, s);
+    speed.waves = a[0] + a[1] + a[2];
+    double sum = speed.rate * std::sqrt(gx * gx + gy * gy + gz * gz);
     for (int axis = 0; axis < 3; ++axis) sum += 0.5 * a[axis] * (s.plus[axis] - s.minus[axis]);
     return sum;
 }
 
-/// The same with the mean rate over `dt` through layers, dissipation shared by the time in each.
+/// The same at the mean rate over `dt` through layers: each acts for its share of the time.
 double Advance::layered_change(const Slopes& s, const Layers& layers, double dt) const {
-    const double gx = s.mean(0), gy = s.mean(1), gz = s.mean(2);
     std::array<double, Layers::capacity> share;
-    const double angle = tilt_of(extruded_, gx, gy, gz).angle;
-    const double rate = walk(tables_, layers, angle, dt, share) / dt;
-    double sum = rate * std::sqrt(gx * gx + gy * gy + gz * gz);
+    const double angle = tilt_of(extruded_, s.mean(0), s.mean(1), s.mean(2)).angle;
+    walk(tables_, layers, angle, dt, share);
+    double sum = 0;
     for (int k = 0; k < layers.count; ++k) {
-        if (share[k] == 0 || layers.row[k] < 0) continue;
-        const std::array<double, 3> a = dissipation(tables_, layers.row[k], extruded_, s);
-        for (int axis = 0; axis < 3; ++axis)
-            sum += share[k] * 0.5 * a[axis] * (s.plus[axis] - s.minus[axis]);
+        Speed speed;
+        if (share[k] > 0 && layers.row[k] >= 0) sum += share[k] * change(s, layers.row[k], speed);
     }
     return sum;
 }
 
-LargestSpeeds Advance::first_stage() {
-    LargestSpeeds most;
+/// Slopes of the front that the cell belongs to. Where a front meets a resting wall at an inner edge,
+/// the gas beyond the bisector is nearer to the wall; its phi would hold the front back, so the
+/// front's own plane stands in for it.
+Slopes Advance::special_slopes(const double* phi, const LayeredCell& at) const {
+    Slopes s = slopes(phi, at.cell, at.unseen | at.beside);
+    for (int side = 0; side < 6; ++side) {
+        if (!(at.beside >> side & 1)) continue;
+        (side & 1 ? s.plus : s.minus)[side / 2] = (&surface_.normal[element_[at.cell]].x)[side / 2];
+    }
+    return s;
+}
+
+Speed Advance::first_stage() {
+    Speed most;
     const double* phi = band_.phi.data();
     std::vector<double> front(band_.size() / 1024 + 2, 0.0);
     most.waves = largest_of_ranges(band_.size(), [&](std::size_t begin, std::size_t end) {
@@ -181,47 +224,57 @@ LargestSpeeds Advance::first_stage() {
         for (std::size_t c = begin; c < end; ++c) {
             const int row = row_[c];
             slope_[c] = 0;
-            if (row < 0 || tables_.largest(row) == 0) continue;
-            std::array<double, 3> a;
-            double rate;
-            slope_[c] = change(slopes(phi, c), row, a, rate);
-            waves = std::max(waves, a[0] + a[1] + a[2]);
-            if (std::fabs(phi[c]) < h_) fastest = std::max(fastest, std::fabs(rate));
+            if (!tables_.moves(row)) continue;
+            Speed speed;
+            slope_[c] = change(slopes(phi, c), row, speed);
+            waves = std::max(waves, speed.waves);
+            if (std::fabs(phi[c]) < h_) fastest = std::max(fastest, std::fabs(speed.rate));
         }
         front[begin / 1024] = fastest;
         return waves;
     });
-    most.front = *std::max_element(front.begin(), front.end());
+    most.rate = *std::max_element(front.begin(), front.end());
     for (LayeredCell& cell : layered_) find_layers(cell, most);
     return most;
 }
 
-void Advance::find_layers(LayeredCell& at, LargestSpeeds& most) {
+void Advance::find_layers(LayeredCell& at, Speed& most) {
     const std::size_t c = at.cell;
     const int e = element_[c];
     const double* phi = band_.phi.data();
-    const Slopes s = slopes(phi, c);
-    const double steep = std::sqrt(s.mean(0) * s.mean(0) + s.mean(1) * s.mean(1) +
-                                   s.mean(2) * s.mean(2));
-    const Vec3 foot = at.foot - surface_.normal[e] * ((phi[c] - at.phi0) / std::max(steep, 0.5));
-    finder_.for_cell(c, phi, steep, e, foot, layer_reach * h_, at.layers);
+    Slopes s = slopes(phi, c);
+    const auto length = [&] {
+        return std::sqrt(s.mean(0) * s.mean(0) + s.mean(1) * s.mean(1) + s.mean(2) * s.mean(2));
+    };
+    Foot foot = at.foot;
+    foot.point += foot.inward * ((phi[c] - at.phi0) / std::max(length(), 0.5));
+    at.unseen = finder_.unseen_sides(c, phi, e, foot, element_tilt_[e].angle);
+    at.beside = 0;
+    for (int side = 0; side < 6; ++side) {
+        const int next = band_.neighbour[c][side];
+        if (next < 0 || (at.unseen >> side & 1)) continue;
+        if (!(at.resting >> side & 1) &&
+            !finder_.pinned(next, phi, e, element_tilt_[e].angle))
+            continue;
+        const double n = (&surface_.normal[e].x)[side / 2] * (side & 1 ? h_ : -h_);
+        const double there = phi[next];
+        if (there > 0 && there < phi[c] + n - 0.05 * h_) at.beside |= 1u << side;
+    }
+    s = special_slopes(phi, at);
+    finder_.for_cell(c, phi, length(), e, foot, layer_reach * h_, at.layers);
     for (int k = 0; k < at.layers.count; ++k) {
-        const int row = at.layers.row[k];
-        const std::array<double, 3> a = dissipation(tables_, row, extruded_, s);
-        most.waves = std::max(most.waves, a[0] + a[1] + a[2]);
-        if (std::fabs(phi[c]) < h_)
-            most.front = std::max(
-                most.front,
-                std::fabs(tables_.rate(
-                    row, tilt_of(extruded_, s.mean(0), s.mean(1), s.mean(2)).angle)));
+        Speed speed;
+        if (at.layers.row[k] >= 0) change(s, at.layers.row[k], speed);
+        most.waves = std::max(most.waves, speed.waves);
+        if (std::fabs(phi[c]) < h_) most.rate = std::max(most.rate, std::fabs(speed.rate));
     }
 }
 
-double Advance::choose_step(const LargestSpeeds& most) const {
+double Advance::choose_step(const Speed& most) const {
     double dt = limits_.time - report_.time;
     if (most.waves > 0) dt = std::min(dt, limits_.max_share * h_ / most.waves);
-    if (most.front > 0)
-        dt = std::min(dt, (limits_.max_move - report_.largest_move) * h_ / most.front);
+    if (most.rate > 0)
+        dt = std::min(dt, (limits_.max_move - report_.largest_move) * h_ / most.rate);
     return dt;
 }
 
@@ -229,7 +282,7 @@ void Advance::step(double dt) {
     for_ranges(layered_.size(), [&](std::size_t begin, std::size_t end) {
         for (std::size_t l = begin; l < end; ++l) {
             const std::size_t c = layered_[l].cell;
-            slope_[c] = layered_change(slopes(band_.phi.data(), c), layered_[l].layers, dt);
+            slope_[c] = layered_change(special_slopes(band_.phi.data(), layered_[l]), layered_[l].layers, dt);
         }
     });
     for_ranges(band_.size(), [&](std::size_t begin, std::size_t end) {
@@ -239,17 +292,16 @@ void Advance::step(double dt) {
     for_ranges(band_.size(), [&](std::size_t begin, std::size_t end) {
         for (std::size_t c = begin; c < end; ++c) {
             const int row = row_[c];
-            if (row < 0 || tables_.largest(row) == 0) continue;
-            std::array<double, 3> a;
-            double rate;
-            const double second = change(slopes(next, c), row, a, rate);
+            if (!tables_.moves(row)) continue;
+            Speed speed;
+            const double second = change(slopes(next, c), row, speed);
             band_.phi[c] += 0.5 * dt * (slope_[c] + second);
         }
     });
     for_ranges(layered_.size(), [&](std::size_t begin, std::size_t end) {
         for (std::size_t l = begin; l < end; ++l) {
             const std::size_t c = layered_[l].cell;
-            const double second = layered_change(slopes(next, c), layered_[l].layers, dt);
+            const double second = layered_change(special_slopes(next, layered_[l]), layered_[l].layers, dt);
             band_.phi[c] += 0.5 * dt * (slope_[c] + second);
         }
     });
@@ -262,9 +314,9 @@ void Advance::move_elements(double dt) {
 }
 
 void Advance::take_from_films(int e, double dt) {
-    const Vec3 foot = surface_.centre[e] - surface_.normal[e] * report_.moved[e];
+    const Vec3& n = surface_.normal[e];
     Layers layers;
-    finder_.below(e, foot, layer_reach * h_, layers);
+    finder_.below(e, {surface_.centre[e] - n * report_.moved[e], -n, false}, layer_reach * h_, layers);
     std::array<double, Layers::capacity> share;
     const double angle = element_tilt_[e].angle;
     report_.moved[e] += walk(tables_, layers, angle, dt, share);
@@ -289,15 +341,15 @@ AdvanceReport Advance::run() {
     if (band_.size() > 0) refresh();
     while (report_.time < limits_.time && report_.largest_move < limits_.max_move * (1 - 1e-9)) {
         if (moved_since_refresh_ > refresh_move) refresh();
-        const LargestSpeeds most = first_stage();
+        const Speed most = first_stage();
         if (!std::isfinite(most.waves)) throw NumericsError("a rate at the front is not finite");
         const double dt = choose_step(most);
         const bool last = dt >= limits_.time - report_.time;
         step(dt);
         ++report_.sub_steps;
         report_.time = last ? limits_.time : report_.time + dt;
-        report_.largest_move += most.front * dt / h_;
-        moved_since_refresh_ += most.front * dt / h_;
+        report_.largest_move += most.rate * dt / h_;
+        moved_since_refresh_ += most.rate * dt / h_;
     }
     return report_;
 }

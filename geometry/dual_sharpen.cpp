@@ -13,7 +13,8 @@ constexpr double flat_cosine = 0.978;  ///< 12 deg: quads round a vertex away fr
 constexpr double sharp_cosine = 0.906; ///< 25 deg: a vertex worth looking at
 constexpr double edge_cosine = 0.866;  ///< 30 deg between one-sided normals: an edge
 constexpr double third_cosine = 0.707; ///< 45 deg to both faces of an edge: a third face
-constexpr double reach = 3.3;          ///< [cells] faces are fitted within
+constexpr double reach = 4.6;          ///< [cells] faces are fitted within
+constexpr double undisturbed = 1.8; ///< [cells] of an element's centre from the other face
 constexpr double lateral = 0.8;        ///< [cells] weight along an edge: it may be curved
 constexpr double largest_spread = 0.35; ///< of the angle between faces; more is a round surface
 
@@ -206,7 +207,7 @@ class Sharpener {
 
     /// Splits the samples into two or three faces; false where the surface is smooth or round.
     static bool find_faces(std::vector<Sample>& samples, LocalSolid& solid) {
-        if (samples.size() < 4) return false;
+        if (samples.size() < 3) return false;
         int seed[3] = {0, 0, -1};
         double least = 1;
         for (std::size_t a = 0; a < samples.size(); ++a)
@@ -228,10 +229,31 @@ class Sharpener {
                 seed[2] = static_cast<int>(c);
             }
         }
-        solid.count = seed[2] < 0 ? 2 : 3;
+        // A curved face may look like two: then try without the third.
+        return (seed[2] >= 0 && split(samples, seed, 3, solid)) || split(samples, seed, 2, solid);
+    }
+
+    /// Weights against what disturbs a fit: the other face, within the reach of its bend in phi,
+    /// and the curvature of the edge.
+    static void weigh(std::vector<Sample>& samples, const LocalSolid& solid) {
+        const Vec3 along = solid.face[0].normal.cross(solid.face[1].normal).normalized();
+        for (Sample& s : samples) {
+            double away = undisturbed;
+            for (int f = 0; f < solid.count; ++f)
+                if (f != s.face) away = std::min(away, std::fabs(solid.face[f].value(s.point)));
+            s.weight = std::pow(away / undisturbed, 8);
+            if (solid.count > 2) continue;
+            const double aside = s.point.dot(along) / lateral;
+            s.weight *= std::exp(-0.5 * aside * aside);
+        }
+    }
+
+    static bool split(std::vector<Sample>& samples, const int (&seed)[3], int count, LocalSolid& solid) {
+        solid.count = count;
         for (Sample& s : samples) {
             double nearest = -2;
-            for (int f = 0; f < solid.count; ++f) {
+            s.weight = 1;
+            for (int f = 0; f < count; ++f) {
                 const double cosine = s.normal.dot(samples[seed[f]].normal);
                 if (cosine > nearest) {
                     nearest = cosine;
@@ -240,12 +262,8 @@ class Sharpener {
             }
         }
         fit(samples, solid);
-        if (solid.count == 2) {
-            const Vec3 along = solid.face[0].normal.cross(solid.face[1].normal).normalized();
-            for (Sample& s : samples) {
-                const double away = s.point.dot(along) / lateral;
-                s.weight = std::exp(-0.5 * away * away);
-            }
+        for (int round = 0; round < 2; ++round) {
+            weigh(samples, solid);
             fit(samples, solid);
         }
         return distinct(samples, solid);
@@ -263,7 +281,7 @@ class Sharpener {
             if (s.weight > 0.1 && cosine < std::cos(largest_spread * angle)) return false;
         }
         for (int f = 0; f < solid.count; ++f)
-            if (solid.face[f].weight < 0.3) return false;
+            if (!(solid.face[f].weight > 1e-9)) return false;
         return true;
     }
 

@@ -66,16 +66,15 @@ bool crosses_side(const CellValues& v) {
     return std::any_of(v.value.begin(), v.value.end(), [&](double x) { return (x >= 0) != gas; });
 }
 
-} // namespace
-
-CrossedCell crossed_cell(const Band& band, const DualMesh& mesh, int vertex) {
+/// `meet_side`: end on a periodic side where the cell reaches over it.
+CrossedCell crossings(const Band& band, const DualMesh& mesh, int vertex, bool meet_side) {
     const DualCell& cell = mesh.cells[mesh.cell_of_vertex[vertex]];
     const int sheet = vertex - cell.first_vertex;
     const Domain& d = band.domain;
     const auto& c = band.cells[cell.node];
     CellValues v = cell_values(band, cell);
     const bool across = v.across[0] || v.across[1];
-    const bool to_side = across && cell.sheets == 1 && crosses_side(v);
+    const bool to_side = meet_side && across && cell.sheets == 1 && crosses_side(v);
     const double x_max = 0.5 * d.width_x(), y_max = 0.5 * d.width_y();
     const double side[2] = {cell.low[0] ? -x_max : x_max, cell.low[1] ? -y_max : y_max};
 
@@ -121,6 +120,18 @@ CrossedCell crossed_cell(const Band& band, const DualMesh& mesh, int vertex) {
             e.crossing = e.a + (e.b - e.a) * t;
         }
     return out;
+}
+
+} // namespace
+
+CrossedCell crossed_cell(const Band& band, const DualMesh& mesh, int vertex) {
+    const CrossedCell to_side = crossings(band, mesh, vertex, true);
+    if (band.domain.sides == Sides::mirror || !(to_side.on_side[0] || to_side.on_side[1]))
+        return to_side;
+    // A wall along a periodic side may be far from where it meets the side: leave it where it is.
+    const CrossedCell free = crossings(band, mesh, vertex, false);
+    const double moved = (to_side.mean() - free.mean()).length();
+    return moved < 0.6 * band.domain.spacing ? to_side : free;
 }
 
 void place_vertices(const Band& band, DualMesh& mesh) {

@@ -1,6 +1,7 @@
 // SPDX-License-Identifier: Apache-2.0
 #include "geometry/dual_mesh.hpp"
 #include "geometry/extract_surface.hpp"
+#include "geometry/period_clip.hpp"
 #include "geometry/ranges.hpp"
 
 #include <algorithm>
@@ -64,7 +65,7 @@ void add_vertices(const Band& band, const DualMesh& mesh, Surface& s) {
     });
 }
 
-void measure(const DualMesh& mesh, double h, Surface& s) {
+void measure(const DualMesh& mesh, const std::vector<int>& origin, double h, Surface& s) {
     const std::size_t size = s.corners.size();
     s.centre.resize(size);
     s.normal.resize(size);
@@ -75,26 +76,28 @@ void measure(const DualMesh& mesh, double h, Surface& s) {
             const Vec3 a = s.vertices[v[0]], b = s.vertices[v[1]], c = s.vertices[v[2]],
                        d = s.vertices[v[3]];
             const Vec3 across = (c - a).cross(d - b) * 0.5;
-            s.centre[n] = (a + b + c + d) * 0.25;
+            s.centre[n] = v[2] == v[3] ? (a + b + c) / 3.0 : (a + b + c + d) * 0.25;
             s.area[n] = across.length();
             if (s.area[n] > 1e-12 * h * h) {
                 s.normal[n] = across / s.area[n];
             } else { // collapsed: the direction of its grid edge
                 s.normal[n] = Vec3(0, 0, 0);
-                s.normal[n][mesh.quads[n].axis] = mesh.quads[n].up ? 1 : -1;
+                const DualQuad& quad = mesh.quads[origin[n]];
+                s.normal[n][quad.axis] = quad.up ? 1 : -1;
             }
         }
     });
 }
 
 /// Numbers the parts; 0 is the uppermost that covers the period with the gas above.
-void number_chains(const DualMesh& mesh, const Domain& domain, Surface& s) {
+void number_chains(const DualMesh& mesh, const std::vector<int>& origin, const Domain& domain,
+                   Surface& s) {
     const std::vector<int> part = parts_of_vertices(mesh);
     const int parts = part.empty() ? 0 : *std::max_element(part.begin(), part.end()) + 1;
     std::vector<double> cover(parts, 0), top(parts, -1e300);
-    s.chain.resize(mesh.quads.size());
-    for (std::size_t n = 0; n < mesh.quads.size(); ++n) {
-        const int p = s.chain[n] = part[mesh.quads[n].vertex[0]];
+    s.chain.resize(s.size());
+    for (std::size_t n = 0; n < s.size(); ++n) {
+        const int p = s.chain[n] = part[mesh.quads[origin[n]].vertex[0]];
         cover[p] += s.area[n] * s.normal[n].z;
         top[p] = std::max(top[p], s.centre[n].z);
     }
@@ -114,8 +117,11 @@ Surface extract_full(const Band& band) {
     sharpen(band, mesh);
     Surface s;
     add_vertices(band, mesh, s);
-    measure(mesh, band.domain.spacing, s);
-    number_chains(mesh, band.domain, s);
+    std::vector<int> origin(mesh.quads.size());
+    if (band.domain.sides == Sides::periodic) origin = clip_to_period(band.domain, s);
+    else std::iota(origin.begin(), origin.end(), 0);
+    measure(mesh, origin, band.domain.spacing, s);
+    number_chains(mesh, origin, band.domain, s);
     return s;
 }
 

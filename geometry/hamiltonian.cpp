@@ -1,6 +1,7 @@
 // SPDX-License-Identifier: Apache-2.0
 #include "geometry/hamiltonian.hpp"
 
+#include "geometry/band_topology.hpp"
 #include "geometry/check.hpp"
 
 #include <algorithm>
@@ -19,9 +20,11 @@ double minmod(double a, double b) {
 }
 
 void slopes_along(const Band& band, const double* phi, std::size_t cell, double inverse_spacing,
-                  int axis, Slopes& out) {
+                  int axis, unsigned unseen, Slopes& out) {
     const int c = static_cast<int>(cell);
-    const int left = band.neighbour[c][2 * axis], right = band.neighbour[c][2 * axis + 1];
+    int left = band.neighbour[c][2 * axis], right = band.neighbour[c][2 * axis + 1];
+    if (unseen >> 2 * axis & 1) left = -1;
+    if (unseen >> (2 * axis + 1) & 1) right = -1;
     const double here = phi[c];
     if (left < 0 || right < 0) {
         // The edge of the band: second-order differences from the side that is there.
@@ -122,16 +125,18 @@ WaveSpeed over_box(const RateTables& tables, int row, bool extruded, const Box& 
 
 } // namespace
 
-Slopes slopes_2d(const Band& band, const double* phi, std::size_t cell, double inverse_spacing) {
+Slopes slopes_2d(const Band& band, const double* phi, std::size_t cell, double inverse_spacing,
+                 unsigned unseen) {
     Slopes s;
-    slopes_along(band, phi, cell, inverse_spacing, 0, s);
-    slopes_along(band, phi, cell, inverse_spacing, 2, s);
+    slopes_along(band, phi, cell, inverse_spacing, 0, unseen, s);
+    slopes_along(band, phi, cell, inverse_spacing, 2, unseen, s);
     return s;
 }
 
-Slopes slopes_3d(const Band& band, const double* phi, std::size_t cell, double inverse_spacing) {
+Slopes slopes_3d(const Band& band, const double* phi, std::size_t cell, double inverse_spacing,
+                 unsigned unseen) {
     Slopes s;
-    for (int axis = 0; axis < 3; ++axis) slopes_along(band, phi, cell, inverse_spacing, axis, s);
+    for (int axis = 0; axis < 3; ++axis) slopes_along(band, phi, cell, inverse_spacing, axis, unseen, s);
     return s;
 }
 
@@ -156,17 +161,13 @@ RateTables::RateTables(const NormalRates& rates) : rates_(rates) {
         while (s + 2 < static_cast<int>(n) && angle[s + 1] <= start) ++s;
         bin_.push_back(s);
     }
-    for (std::size_t r = 0; r < rows; ++r) {
-        const double* v = values(static_cast<int>(r));
-        bool same = true;
-        double most = 0;
-        for (std::size_t a = 0; a < n; ++a) {
-            same = same && v[a] == v[0];
-            most = std::max(most, std::fabs(v[a]));
+    constant_.resize(rows);
+    for_ranges(rows, [&](std::size_t begin, std::size_t end) {
+        for (std::size_t r = begin; r < end; ++r) {
+            const double* v = values(static_cast<int>(r));
+            constant_[r] = std::all_of(v, v + n, [v](double rate) { return rate == v[0]; });
         }
-        constant_.push_back(same);
-        largest_.push_back(most);
-    }
+    });
 }
 
 int RateTables::segment(double angle) const {
@@ -204,6 +205,20 @@ WaveSpeed RateTables::wave_speed(int row, const Tilt& low, const Tilt& high) con
     return out;
 }
 
+double upwind_steepness(const Slopes& s, bool recedes, double& waves) {
+    double square = 0, sum = 0;
+    for (int a = 0; a < 3; ++a) {
+        const double up = recedes ? s.plus[a] : s.minus[a];
+        const double down = recedes ? s.minus[a] : s.plus[a];
+        const double g = std::max(std::max(up, 0.0), -std::min(down, 0.0));
+        square += g * g;
+        sum += g;
+    }
+    const double length = std::sqrt(square);
+    waves = length > 0 ? sum / length : 0;
+    return length;
+}
+
 std::array<double, 3> dissipation(const RateTables& tables, int row, bool extruded,
                                   const Slopes& s) {
     if (row < 0) return {0, 0, 0};
@@ -217,7 +232,7 @@ std::array<double, 3> dissipation(const RateTables& tables, int row, bool extrud
         return square > 0 ? one / std::sqrt(square) : 0;
     };
     if (tables.constant(row)) {
-        const double rate = tables.largest(row);
+        const double rate = std::fabs(tables.rate(row, 0));
         return {rate * share(high[0], low[1] * low[1] + low[2] * low[2]),
                 rate * share(high[1], low[0] * low[0] + low[2] * low[2]),
                 rate * share(high[2], low[0] * low[0] + low[1] * low[1])};

@@ -11,13 +11,15 @@
 namespace rille::geometry {
 
 /// One-sided slopes of phi at a cell, second order (minmod-limited); axes x, y, z. Where the band ends
-/// the slope of the other side continues.
+/// the slope of the other side continues; so it does where `unseen` hides a neighbour (bit s: side s).
 struct Slopes {
     double minus[3] = {0, 0, 0}, plus[3] = {0, 0, 0};
     double mean(int axis) const { return 0.5 * (minus[axis] + plus[axis]); }
 };
-Slopes slopes_2d(const Band&, const double* phi, std::size_t cell, double inverse_spacing);
-Slopes slopes_3d(const Band&, const double* phi, std::size_t cell, double inverse_spacing);
+Slopes slopes_2d(const Band&, const double* phi, std::size_t cell, double inverse_spacing,
+                 unsigned unseen = 0);
+Slopes slopes_3d(const Band&, const double* phi, std::size_t cell, double inverse_spacing,
+                 unsigned unseen = 0);
 
 /// A normal as the rate tables see it: the angle with its sine and cosine.
 struct Tilt {
@@ -45,7 +47,8 @@ class RateTables {
         return v[0] + (v[1] - v[0]) * ((angle - rates_.angles[s]) * inverse_width_[s]);
     }
     bool constant(int row) const { return row < 0 || constant_[row]; }
-    double largest(int row) const { return row < 0 ? 0 : largest_[row]; }
+    /// Whether a row has any rate but 0.
+    bool moves(int row) const { return row >= 0 && (!constant_[row] || values(row)[0] != 0); }
     /// Over tilts from `low` to `high`, low.angle <= high.angle, both within the table.
     WaveSpeed wave_speed(int row, const Tilt& low, const Tilt& high) const;
 
@@ -59,8 +62,11 @@ class RateTables {
     double bins_per_radian_ = 0;
     std::vector<double> inverse_width_, sine_, cosine_;
     std::vector<char> constant_;
-    std::vector<double> largest_;
 };
+
+/// |grad phi| by Godunov's choice of one-sided slopes, for a rate that does not depend on the normal
+/// (`recedes`: the solid recedes, else it grows), and in `waves` the sum of |n_x|, |n_y|, |n_z|.
+double upwind_steepness(const Slopes&, bool recedes, double& waves);
 
 /// Dissipation coefficients of local Lax-Friedrichs for one cell and row, x, y, z [nm/s].
 std::array<double, 3> dissipation(const RateTables&, int row, bool extruded, const Slopes&);

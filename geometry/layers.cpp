@@ -10,6 +10,8 @@ namespace rille::geometry {
 
 namespace {
 constexpr double endless = std::numeric_limits<double>::infinity();
+constexpr double just_inside = 1e-9; ///< [cells] a point on an interface counts for the solid's side
+constexpr double corner_inside = 0.2; ///< [cells] corners of the contour are known no better
 } // namespace
 
 double walk(const RateTables& tables, const Layers& layers, double angle, double time,
@@ -29,27 +31,35 @@ double walk(const RateTables& tables, const Layers& layers, double angle, double
     return distance;
 }
 
-LayerFinder::LayerFinder(const Band& band, const Surface& surface, const NormalRates& rates,
-                         const RateTables& tables, const Stack& stack, const GrownFilms& films)
-    : band_(band), surface_(surface), rates_(rates), tables_(tables), stack_(stack),
-      films_(films) {}
+Foot foot_of(const Vec3& p, double phi, const Vec3& nearest, const Vec3& normal, double spacing) {
+    Foot foot{nearest, -normal, false};
+    Vec3 line = phi < 0 ? p - nearest : nearest - p;
+    const double length = line.length();
+    if (length < 0.05 * spacing) return foot;
+    line /= length;
+    if (line.dot(foot.inward) > 1 - 1e-4) return foot;
+    foot.inward = line;
+    foot.corner = true;
+    return foot;
+}
 
-bool LayerFinder::near(int element, const Vec3& p, double reach) const {
+LayerFinder::LayerFinder(const Band& band, const NormalRates& rates, const RateTables& tables,
+                         const Stack& stack, const GrownFilms& films)
+    : band_(band), rates_(rates), tables_(tables), stack_(stack), films_(films) {}
+
+bool LayerFinder::near(int element, double z, double reach) const {
     for (const std::vector<double>& thickness : films_.thickness)
         if (thickness[element] > 0) return true;
-    const std::vector<Film>& films = stack_.films();
-    const int top = stack_.film_at(p.z + reach), bottom = stack_.film_at(p.z - reach);
-    return top != bottom && films.size() > 1;
+    return stack_.film_at(z + reach) != stack_.film_at(z - reach);
 }
 
-int LayerFinder::film_inside(int element, const Vec3& foot) const {
-    // Just inside: a point exactly on an interface belongs to the film on the solid's side.
-    const double step = 1e-9 * band_.domain.spacing;
-    return stack_.film_at(foot.z - step * surface_.normal[element].z);
+int LayerFinder::film_inside(const Foot& foot) const {
+    const double step = (foot.corner ? corner_inside : just_inside) * band_.domain.spacing;
+    return stack_.film_at(foot.point.z + step * foot.inward.z);
 }
 
-int LayerFinder::row_below(int element, const Vec3& foot) const {
-    return row_of_film(element, film_inside(element, foot));
+int LayerFinder::row_below(int element, const Foot& foot) const {
+    return row_of_film(element, film_inside(foot));
 }
 
 double LayerFinder::grown(int element, Layers& out) const {
@@ -63,26 +73,28 @@ double LayerFinder::grown(int element, Layers& out) const {
     return sum;
 }
 
-void LayerFinder::stack_below(int element, Vec3 p, double reach, Layers& out) const {
-    const Vec3 inward = -surface_.normal[element];
-    const double step = 1e-9 * band_.domain.spacing;
+void LayerFinder::stack_below(int element, Foot foot, double reach, Layers& out) const {
+    const Vec3 inward = foot.inward;
     for (double gone = 0; out.count < Layers::capacity;) {
-        const int film = film_inside(element, p);
+        const int film = film_inside(foot);
+        const double step = (foot.corner ? corner_inside : just_inside) * band_.domain.spacing;
         const int row = row_of_film(element, film);
-        const double depth = stack_.distance_to_interface(p + inward * step, inward) + step;
+        const double depth = stack_.distance_to_interface(foot.point + inward * step, inward) + step;
         gone += depth;
-        const bool blocked = tables_.largest(row) == 0;
+        const bool blocked = !tables_.moves(row);
         out.add(row, blocked || gone > reach ? endless : depth);
         if (blocked || gone > reach) return;
-        p += inward * depth;
+        foot.point += inward * depth;
+        foot.corner = false;
     }
 }
 
-void LayerFinder::below(int element, const Vec3& foot, double reach, Layers& out) const {
+void LayerFinder::below(int element, const Foot& foot, double reach, Layers& out) const {
     out.count = 0;
     const double films = grown(element, out);
     if (films > reach) return;
-    stack_below(element, foot - surface_.normal[element] * films, reach - films, out);
+    stack_below(element, {foot.point + foot.inward * films, foot.inward, foot.corner}, reach - films,
+                out);
 }
 
 double LayerFinder::limit(std::size_t cell, const double* phi, double steep, int from,
@@ -116,18 +128,49 @@ double LayerFinder::limit(std::size_t cell, const double* phi, double steep, int
     return least;
 }
 
+unsigned LayerFinder::slow_sides(std::size_t cell, const double* phi, int element,
+                                 double angle) const {
+    const double h = band_.domain.spacing;
+    const int own = stack_.film_at((band_.cells[cell].k + 0.5) * h);
+    unsigned sides = 0;
+    for (int side = 4; side < 6; ++side) {
+        const int n = band_.neighbour[cell][side];
+        if (n < 0 || phi[n] >= 0) continue;
+        const int other = stack_.film_at((band_.cells[n].k + 0.5) * h);
+        if (other != own && tables_.rate(row_of_film(element, other), angle) <
+                                0.5 * tables_.rate(row_of_film(element, own), angle))
+            sides |= 1u << side;
+    }
+    return sides;
+}
+
+unsigned LayerFinder::unseen_sides(std::size_t cell, const double* phi, int element,
+                                   const Foot& foot, double angle) const {
+    const int own = stack_.film_at((band_.cells[cell].k + 0.5) * band_.domain.spacing);
+    return film_inside(foot) == own ? slow_sides(cell, phi, element, angle) : 0;
+}
+
+bool LayerFinder::pinned(std::size_t cell, const double* phi, int element, double angle) const {
+    const double h = band_.domain.spacing, z = (band_.cells[cell].k + 0.5) * h;
+    if (phi[cell] <= 0) return false;
+    const unsigned sides = slow_sides(cell, phi, element, angle);
+    const Film& own = stack_.films()[stack_.film_at(z)];
+    return ((sides >> 4 & 1) && phi[cell] > z - own.bottom - 0.1 * h) ||
+           ((sides >> 5 & 1) && phi[cell] > own.top - z - 0.1 * h);
+}
+
 void LayerFinder::for_cell(std::size_t cell, const double* phi, double steep, int element,
-                           const Vec3& foot, double reach, Layers& out) const {
+                           const Foot& foot, double reach, Layers& out) const {
     out.count = 0;
     const double films = grown(element, out);
     if (films > reach) return;
-    const Vec3 p = foot - surface_.normal[element] * films;
-    const int from = film_inside(element, p);
+    const Foot base{foot.point + foot.inward * films, foot.inward, foot.corner};
+    const int from = film_inside(base);
     int after = -1;
     const double bound = limit(cell, phi, steep, from, after) - films;
-    const Vec3 inward = -surface_.normal[element];
-    if (after < 0 || stack_.distance_to_interface(p, inward) <= bound || bound > reach) {
-        stack_below(element, p, reach - films, out);
+    const bool crosses = stack_.distance_to_interface(base.point, base.inward) <= bound;
+    if (after < 0 || crosses || bound > reach) {
+        stack_below(element, base, reach - films, out);
         return;
     }
     // Through the rest of the foot's film, then the films between it and the cell, each once.
@@ -138,7 +181,7 @@ void LayerFinder::for_cell(std::size_t cell, const double* phi, double steep, in
         const int row = row_of_film(element, film);
         const Film& f = stack_.films()[film];
         gone += f.top - f.bottom;
-        const bool end = gone > reach || tables_.largest(row) == 0;
+        const bool end = gone > reach || !tables_.moves(row);
         out.add(row, end ? endless : f.top - f.bottom);
         if (end) return;
     }

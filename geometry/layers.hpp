@@ -31,28 +31,48 @@ struct Layers {
 double walk(const RateTables&, const Layers&, double angle, double time,
             std::array<double, Layers::capacity>& share);
 
+/// Where the front nearest to a cell is, and which way leads from there into the solid (unit).
+struct Foot {
+    Vec3 point;  ///< [nm]
+    Vec3 inward; ///< -normal of the element; at a corner the line through the cell
+    bool corner = false;
+};
+/// Foot of a cell at p on element e; phi tells the side the cell is on.
+Foot foot_of(const Vec3& p, double phi, const Vec3& nearest, const Vec3& normal, double spacing);
+
 /// Finds the layers below points of the front.
 class LayerFinder {
   public:
-    LayerFinder(const Band&, const Surface&, const NormalRates&, const RateTables&, const Stack&,
+    LayerFinder(const Band&, const NormalRates&, const RateTables&, const Stack&,
                 const GrownFilms&);
 
-    /// Whether an interface or a grown film can matter to a point that stays within `reach` [nm] of p.
-    bool near(int element, const Vec3& p, double reach) const;
-    /// Row for the material just inside the solid below foot p of element e, no grown film.
-    int row_below(int element, const Vec3& foot) const;
-    /// Layers below `foot` along -normal, until more than `reach` [nm] is gathered or nothing moves.
-    void below(int element, const Vec3& foot, double reach, Layers& out) const;
+    /// Whether an interface or a grown film can matter to a point that stays within `reach` [nm] of
+    /// height z.
+    bool near(int element, double z, double reach) const;
+    /// Row for the material just inside the solid below a foot on element e, no grown film.
+    int row_below(int element, const Foot&) const;
+    /// Layers below a foot, until more than `reach` [nm] is gathered or nothing moves.
+    void below(int element, const Foot&, double reach, Layers& out) const;
     /// Layers for a cell at phi with gradient length `steep`: as `below`, but a film that the cell
     /// lies in, or that stays solid next to it, is not passed through at the rate of the film its
     /// foot lies in. Keeps lips of slow films sharp.
-    void for_cell(std::size_t cell, const double* phi, double steep, int element, const Vec3& foot,
+    void for_cell(std::size_t cell, const double* phi, double steep, int element, const Foot&,
                   double reach, Layers& out) const;
+    /// Sides (bits, as in Slopes) across which the film that the cell lies in meets one that holds
+    /// still or recedes at less than half its rate, at `angle`: the front runs along that interface, and
+    /// what lies beyond has no say in it.
+    unsigned unseen_sides(std::size_t cell, const double* phi, int element, const Foot&,
+                          double angle) const;
+
+    /// Whether the cell lies in the gas right at an interface whose film holds still, at `angle`,
+    /// against the film the cell lies in: its phi is the distance to that interface.
+    bool pinned(std::size_t cell, const double* phi, int element, double angle) const;
 
   private:
     double grown(int element, Layers& out) const;
-    void stack_below(int element, Vec3 p, double reach, Layers& out) const;
-    int film_inside(int element, const Vec3& foot) const;
+    unsigned slow_sides(std::size_t cell, const double* phi, int element, double angle) const;
+    void stack_below(int element, Foot foot, double reach, Layers& out) const;
+    int film_inside(const Foot&) const;
     int row_of_film(int element, int film) const {
         return rates_.row(element, stack_.films()[film].material);
     }
@@ -60,7 +80,6 @@ class LayerFinder {
     double limit(std::size_t cell, const double* phi, double steep, int from, int& after) const;
 
     const Band& band_;
-    const Surface& surface_;
     const NormalRates& rates_;
     const RateTables& tables_;
     const Stack& stack_;

@@ -52,6 +52,7 @@ struct Feature {
     Domain domain;
     Surface surface;
     double depth = 0;
+    double facets = 0; ///< relative error because the surface is not quite the table's
 };
 
 Feature trench(double aspect) {
@@ -69,6 +70,8 @@ Feature hole(double aspect) {
     f.domain.cells_x = f.domain.cells_y = 30;
     f.depth = aspect * diameter;
     constexpr int around = 32;
+    // Perimeter over area is 0.16 % above the circle's, the flux changes by up to a third of that.
+    f.facets = 5e-4;
     const double step = 2 * std::acos(-1.0) / around;
     const double r = 0.5 * diameter * std::sqrt(step / std::sin(step));
     std::vector<std::array<double, 2>> profile;
@@ -116,98 +119,98 @@ std::map<std::string, double> summary(const Feature& f, const std::vector<double
 
 struct Comparison {
     std::vector<double> pulls;
-    double largest_error = 0; ///< standard error of a floor mean over its value
+    double largest_error = 0; ///< standard error over value
     double largest_deviation = 0;
 };
 
-/// Pulls against the table; `fault` scales the computed values.
-void compare(const Feature& f, const std::map<std::string, double>& row, int scrambles,
-             double fault, Comparison& out) {
+/// Pulls of the named quantities against the table; `fault` scales the computed values. Means over
+/// n scrambles have Student pulls: scaled to unit variance by sqrt((n - 3) / (n - 1)).
+void compare(const Feature& f, const std::map<std::string, double>& row,
+             const std::vector<std::string>& names, int scrambles, double fault, Comparison& out) {
     const RayCaster caster(f.domain, f.surface, 1.0);
     std::vector<double> sticking(f.surface.size(), 0);
     for (int e = 0; e < int(sticking.size()); ++e)
         sticking[e] = on_floor(f, e) ? row.at("s_b") : on_wall(f, e) ? row.at("s_w") : 0;
     std::map<std::string, std::vector<double>> values;
     for (int r = 0; r < scrambles; ++r) {
-        const auto name = std::uint64_t(1e6 * row.at("AR") + 1e5 * row.at("s_w") +
-                                        100 * row.at("s_b")); // a stream of its own
-        const Exchange x(f.domain, f.surface, caster, {64, name, std::uint64_t(r)});
-        for (const auto& [key, value] : summary(f, x.solve(sticking, -1, {})))
-            values[key].push_back(fault * value);
+        const auto seed = std::uint64_t(7919 + 1e6 * row.at("AR") + 1e5 * row.at("s_w") +
+                                        100 * row.at("s_b")); // every row its own streams
+        const Exchange x(f.domain, f.surface, caster, {64, seed, std::uint64_t(r)});
+        const auto all = summary(f, x.solve(sticking, -1, {}));
+        for (const std::string& name : names)
+            values[name].push_back(fault * all.at(name));
     }
     for (const auto& [key, value] : values) {
         const tests::Mean mean(value);
-        const double exact = row.at(key);
-        out.pulls.push_back((mean.value - exact) / mean.error);
+        const double exact = row.at(key), unit = std::sqrt((scrambles - 3.0) / (scrambles - 1));
+        out.pulls.push_back((mean.value - exact) / std::hypot(mean.error / unit, f.facets * exact));
         out.largest_error = std::max(out.largest_error, mean.error / exact);
         out.largest_deviation = std::max(out.largest_deviation, std::fabs(mean.value / exact - 1));
     }
 }
 
+/// Quantities of one run hang together, so each run is asked for one place (trench) or two far
+/// apart (hole) only, in turn.
 template <typename Shape>
 Comparison compare_all(Shape shape, const std::string& table, const std::vector<double>& aspects,
                        const std::vector<std::array<double, 2>>& stickings, int scrambles,
                        double fault = 1) {
+    const bool two = table == "closed_cylinder.csv";
+    const std::vector<std::vector<std::string>> places =
+        two ? std::vector<std::vector<std::string>>{{"H_0.10", "bottom_avg"},
+                                                    {"H_0.10", "H_0.90"},
+                                                    {"H_0.25", "bottom_avg"}}
+            : std::vector<std::vector<std::string>>{{"bottom_avg"}, {"H_0.10"}, {"H_0.50"},
+                                                    {"bottom_avg"}, {"H_0.90"}, {"H_wall_mean"}};
     const auto rows = read_table(table);
     Comparison out;
+    int turn = 0;
     for (const double aspect : aspects) {
         const Feature f = shape(aspect);
         for (const auto& s : stickings)
-            compare(f, rows.at({aspect, s[0], s[1]}), scrambles, fault, out);
+            compare(f, rows.at({aspect, s[0], s[1]}), places[turn++ % places.size()], scrambles,
+                    fault, out);
     }
     return out;
 }
 
-void report(const Comparison& c, const tests::Pulls& pulls) {
-    UNSCOPED_INFO("bins " << pulls.count << " chi2/nu " << pulls.chi2_per_bin << " largest pull "
-                          << pulls.largest << " mean pull " << pulls.mean << " largest error "
-                          << c.largest_error << " largest deviation " << c.largest_deviation);
-}
+const std::vector<std::array<double, 2>> stickings{
+    {0, 0.1},    {0, 1},     {0.001, 0.1}, {0.001, 1}, {0.01, 0.01}, {0.01, 0.1}, {0.01, 1},
+    {0.1, 0.01}, {0.1, 0.1}, {0.1, 0.5},   {0.1, 1},   {0.5, 0.1},   {0.5, 1}};
 
-const std::vector<std::array<double, 2>> few{{0, 0.1}, {0.01, 1}, {0.1, 0.1}, {0.5, 1}};
-const std::vector<std::array<double, 2>> many{{0, 0.1},    {0, 1},      {0.001, 0.1}, {0.01, 0.01},
-                                              {0.01, 0.1}, {0.01, 0.5}, {0.01, 1},    {0.1, 0},
-                                              {0.1, 0.1},  {0.1, 1},    {0.5, 0.1},   {0.5, 1}};
+void check(const Comparison& c) {
+    const tests::Pulls pulls(c.pulls);
+    INFO("bins " << pulls.count << " chi2/nu " << pulls.chi2_per_bin << " largest pull "
+                 << pulls.largest << " mean pull " << pulls.mean << " largest error "
+                 << c.largest_error << " largest deviation " << c.largest_deviation);
+    CHECK(pulls.agree());
+    CHECK(c.largest_error < 0.01);
+}
 
 } // namespace
 
 TEST_CASE("neutrals in a closed trench", "[neutrals]") {
     // Oracle: impinging flux on floor and walls of a closed trench, table closed_trench.csv.
     // Source: computed (integral equation, 1e-8).
-    // Tolerance: chi2/nu within 1 +- 4 sqrt(2/nu), largest pull < 4.5, mean pull < 4/sqrt(n), over
-    // floor mean, wall mean and five depths; standard errors < 1 %; values 2 % high must fail.
-    const auto c = compare_all(trench, "closed_trench.csv", {1, 2, 5, 10}, few, 24);
-    const tests::Pulls pulls(c.pulls);
-    report(c, pulls);
-    CHECK(pulls.agree());
-    CHECK(c.largest_error < 0.01);
-    CHECK_FALSE(tests::Pulls(compare_all(trench, "closed_trench.csv", {1, 2}, few, 24, 1.02).pulls)
-                    .agree());
+    // Tolerance: 52 independent bins, chi2/nu within 1 +- 4 sqrt(2/nu), largest pull < 4.5, mean
+    // pull < 4/sqrt(n); standard errors < 1 %; values 2 % high must fail.
+    check(compare_all(trench, "closed_trench.csv", {1, 2, 5, 10}, stickings, 20));
+    const auto off = compare_all(trench, "closed_trench.csv", {1, 2}, stickings, 16, 1.02);
+    CHECK_FALSE(tests::Pulls(off.pulls).agree());
 }
 
 TEST_CASE("neutrals in a closed round hole", "[neutrals]") {
     // Oracle: impinging flux on floor and walls of a closed hole, table closed_cylinder.csv.
     // Source: computed (integral equation, 1e-8).
     // Tolerance: as for the trench; 32 quads around, the polygon has the circle's area.
-    const auto c = compare_all(hole, "closed_cylinder.csv", {1, 2, 5}, few, 8);
-    const tests::Pulls pulls(c.pulls);
-    report(c, pulls);
-    CHECK(pulls.agree());
-    CHECK(c.largest_error < 0.01);
-    CHECK_FALSE(
-        tests::Pulls(compare_all(hole, "closed_cylinder.csv", {1, 2}, few, 8, 1.02).pulls).agree());
+    check(compare_all(hole, "closed_cylinder.csv", {1, 2}, stickings, 16));
+    const auto off = compare_all(hole, "closed_cylinder.csv", {1}, stickings, 8, 1.02);
+    CHECK_FALSE(tests::Pulls(off.pulls).agree());
 }
 
-TEST_CASE("neutrals in closed features, all stickings", "[neutrals][long]") {
-    // Oracle: tables closed_trench.csv and closed_cylinder.csv, aspect ratios 1 to 10.
+TEST_CASE("neutrals in deep closed holes", "[neutrals][long]") {
+    // Oracle: impinging flux on floor and walls of a closed hole, table closed_cylinder.csv.
     // Source: computed (integral equation, 1e-8).
-    // Tolerance: as above; every standard error < 1 %.
-    const auto t = compare_all(trench, "closed_trench.csv", {1, 2, 5, 10}, many, 48);
-    report(t, tests::Pulls(t.pulls));
-    CHECK(tests::Pulls(t.pulls).agree());
-    CHECK(t.largest_error < 0.01);
-    const auto h = compare_all(hole, "closed_cylinder.csv", {1, 2, 5, 10}, many, 24);
-    report(h, tests::Pulls(h.pulls));
-    CHECK(tests::Pulls(h.pulls).agree());
-    CHECK(h.largest_error < 0.01);
+    // Tolerance: as above.
+    check(compare_all(hole, "closed_cylinder.csv", {1, 2, 5, 10}, stickings, 32));
 }

@@ -86,8 +86,11 @@ inline LoopResult etch(Front& front, const Loop& loop, double time) {
     while (out.time < time * (1 - 1e-12)) {
         const Surface s = extract_surface(front);
         const auto rates = make_rates(s, loop.angles, loop.materials, loop.law);
+        // Growth is recorded in a film of material 0 that the next call takes as part of the stack.
         geometry::GrownFilms films;
-        const std::vector<int> growth(s.size(), -1);
+        films.material = {0};
+        films.thickness = {std::vector<double>(s.size(), 0.0)};
+        const std::vector<int> growth(s.size(), 0);
         geometry::AdvanceLimits limits;
         limits.time = time - out.time;
         limits.max_move = loop.max_move;
@@ -107,6 +110,15 @@ template <class Distance> double worst_vertex(const Surface& s, const Distance& 
     double most = 0;
     for (const Vec3& v : s.vertices) most = std::max(most, std::fabs(exact(v)));
     return most;
+}
+
+/// Mask of the given thickness on z <= 0 with an opening |x| < half: exact distance.
+inline double mask_distance(const Vec3& p, double half, double thickness) {
+    const double in = half - std::fabs(p.x); // > 0 inside the opening
+    if (p.z > thickness) return in < 0 ? p.z - thickness : std::hypot(in, p.z - thickness);
+    if (in >= 0 && p.z >= 0) return std::min(in, p.z);
+    if (in < 0 && p.z >= 0) return -std::min(-in, thickness - p.z);
+    return -std::min(in > 0 ? -p.z : std::hypot(in, p.z), thickness - p.z);
 }
 
 /// Area between the extruded front and the level z = 0, counted positive below [nm^2].
