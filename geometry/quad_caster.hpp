@@ -32,7 +32,8 @@ private:
     bool enter(Ray&) const;
     double way_to_side(const Ray&, int& axis) const;
     void cross_side(Ray&, int axis) const;
-    Hit finish(Ray&, Hit::Kind, int element, double t) const;
+    void leave_image(Ray&, int quad) const;
+    Hit finish(Ray&, Hit::Kind, int quad, double t) const;
 
     Domain domain_;
     double z_open_ = 0;

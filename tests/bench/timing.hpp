@@ -1,5 +1,6 @@
 // SPDX-License-Identifier: Apache-2.0
-// Ratios of two timings taken in one process, repeats interleaved so that both see the same machine.
+// Ratios of two timings taken in one process, repeats interleaved so that both see the same
+// machine.
 #pragma once
 
 #include <algorithm>
@@ -17,22 +18,34 @@ inline double median(std::vector<double> v) {
 }
 
 /// Wall time [s].
-template <class Work> double seconds(Work&& work) {
+template <class Work>
+double seconds(Work&& work) {
     const auto start = std::chrono::steady_clock::now();
     work();
     return std::chrono::duration<double>(std::chrono::steady_clock::now() - start).count();
 }
 
-/// Time [s] that this thread ran: does not count what others run on the same core.
-template <class Work> double thread_seconds(Work&& work) {
-    const auto now = [] {
+template <class Work>
+double clock_seconds(clockid_t clock, Work&& work) {
+    const auto now = [clock] {
         timespec t{};
-        clock_gettime(CLOCK_THREAD_CPUTIME_ID, &t);
+        clock_gettime(clock, &t);
         return static_cast<double>(t.tv_sec) + 1e-9 * static_cast<double>(t.tv_nsec);
     };
     const double start = now();
     work();
     return now() - start;
+}
+
+/// Time [s] that this thread, or all threads of this process, ran: what others run on the same
+/// cores does not count.
+template <class Work>
+double thread_seconds(Work&& work) {
+    return clock_seconds(CLOCK_THREAD_CPUTIME_ID, work);
+}
+template <class Work>
+double process_seconds(Work&& work) {
+    return clock_seconds(CLOCK_PROCESS_CPUTIME_ID, work);
 }
 
 struct Comparison {
@@ -42,7 +55,8 @@ struct Comparison {
 };
 
 /// For work on one thread. One unmeasured pair first, then `repeats` measured pairs.
-template <class Ours, class Theirs> Comparison compare(int repeats, Ours ours, Theirs theirs) {
+template <class Ours, class Theirs>
+Comparison compare(int repeats, Ours ours, Theirs theirs) {
     ours();
     theirs();
     std::vector<double> a, b, ratio;
