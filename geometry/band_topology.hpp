@@ -20,10 +20,10 @@ void for_ranges(std::size_t n, const std::function<void(std::size_t, std::size_t
 double largest_of_ranges(std::size_t n,
                          const std::function<double(std::size_t, std::size_t)>& body);
 
-/// Finds cells by their indices: per column (i, j) the numbers of its cells by rising k. Every column
-/// crosses the front, so the nearest cell of a column also tells the sign beyond the band.
+/// Finds cells by their indices: per column (i, j) the numbers of its cells by rising k. Every
+/// column crosses the front, so the nearest cell of a column also tells the sign beyond the band.
 class ColumnIndex {
-  public:
+public:
     void build(const Band&);
     /// Number of cell (i, j, k), or -1 outside the band; 0 <= i < cells_x, 0 <= j < cells_y.
     int find(const Band&, int i, int j, int k) const;
@@ -31,7 +31,7 @@ class ColumnIndex {
     double phi(const Band&, int i, int j, int k) const;
     std::size_t memory_bytes() const;
 
-  private:
+private:
     std::pair<const int*, const int*> column(const Band&, int i, int j) const;
     std::vector<int> first_;
     std::vector<int> cell_;

@@ -15,7 +15,8 @@ namespace {
 Vec3 nearest_on_segment(const Vec3& a, const Vec3& b, const Vec3& p) {
     const Vec3 along = b - a;
     const double square = along.dot(along);
-    if (square == 0) return a;
+    if (square == 0)
+        return a;
     return a + along * std::clamp((p - a).dot(along) / square, 0.0, 1.0);
 }
 
@@ -31,7 +32,8 @@ Vec3 nearest_on_triangle(const Vec3& a, const Vec3& b, const Vec3& c, const Vec3
     }
     Vec3 best = nearest_on_segment(a, b, p);
     for (const Vec3& q : {nearest_on_segment(b, c, p), nearest_on_segment(c, a, p)})
-        if ((q - p).length() < (best - p).length()) best = q;
+        if ((q - p).length() < (best - p).length())
+            best = q;
     return best;
 }
 
@@ -44,7 +46,7 @@ struct Candidate {
 };
 
 class Search {
-  public:
+public:
     Search(const Band& band, const Surface& surface, const std::vector<double>& moved)
         : band_(band), surface_(surface), moved_(moved), domain_(band.domain),
           tolerance_(1e-9 * band.domain.spacing) {
@@ -53,14 +55,15 @@ class Search {
 
     ClosestElements run();
 
-  private:
+private:
     void assign_homes();
     Vec3 shift_of(int e) const {
         return moved_.empty() ? Vec3(0) : surface_.normal[e] * -moved_[e];
     }
     /// Nearest image of p to point c in a periodic domain.
     Vec3 image(Vec3 p, const Vec3& c) const {
-        if (domain_.sides != Sides::periodic) return p;
+        if (domain_.sides != Sides::periodic)
+            return p;
         p.x -= domain_.width_x() * std::round((p.x - c.x) / domain_.width_x());
         if (!domain_.extruded())
             p.y -= domain_.width_y() * std::round((p.y - c.y) / domain_.width_y());
@@ -88,47 +91,57 @@ void Search::assign_homes() {
     for (int e = 0; e < n; ++e) {
         const Vec3 c = surface_.centre[e] + shift_of(e);
         const int i = static_cast<int>(std::floor((c.x - domain_.x_min()) / h));
-        const int j = domain_.extruded() ? 0
-                                         : static_cast<int>(std::floor((c.y - domain_.y_min()) / h));
+        const int j =
+            domain_.extruded() ? 0 : static_cast<int>(std::floor((c.y - domain_.y_min()) / h));
         home[e] = index.find(band_, fold_index(i, domain_.cells_x, domain_.sides),
                              fold_index(j, domain_.cells_y, domain_.sides),
                              static_cast<int>(std::floor(c.z / h)));
-        if (home[e] >= 0) ++home_first_[home[e] + 1];
+        if (home[e] >= 0)
+            ++home_first_[home[e] + 1];
     }
-    for (std::size_t c = 1; c < home_first_.size(); ++c) home_first_[c] += home_first_[c - 1];
+    for (std::size_t c = 1; c < home_first_.size(); ++c)
+        home_first_[c] += home_first_[c - 1];
     std::vector<int> at(home_first_.begin(), home_first_.end() - 1);
     home_element_.resize(home_first_.back());
     for (int e = 0; e < n; ++e)
-        if (home[e] >= 0) home_element_[at[home[e]]++] = e;
+        if (home[e] >= 0)
+            home_element_[at[home[e]]++] = e;
 }
 
 bool Search::better(double distance, double facing, int e, const Candidate& best) const {
-    if (best.element < 0) return true;
-    if (distance < best.distance - tolerance_) return true;
-    if (distance > best.distance + tolerance_) return false;
-    if (std::fabs(facing - best.facing) > 1e-9) return facing > best.facing;
-    const double level = std::fabs(surface_.normal[e].z) -
-                         std::fabs(surface_.normal[best.element].z);
+    if (best.element < 0)
+        return true;
+    if (distance < best.distance - tolerance_)
+        return true;
+    if (distance > best.distance + tolerance_)
+        return false;
+    if (std::fabs(facing - best.facing) > 1e-9)
+        return facing > best.facing;
+    const double level =
+        std::fabs(surface_.normal[e].z) - std::fabs(surface_.normal[best.element].z);
     return std::fabs(level) > 1e-9 ? level > 0 : e < best.element;
 }
 
 void Search::offer(const Vec3& p, int e, Candidate& best) const {
-    if (e == best.element) return;
+    if (e == best.element)
+        return;
     const Vec3 shift = shift_of(e);
     const Vec3 local = image(p, surface_.centre[e] + shift);
     // An element's reach from its centre: half a segment, the disc of a quad.
     const double size = domain_.extruded() ? 0.5 * surface_.area[e] : std::sqrt(surface_.area[e]);
     const double least = best.distance + size + tolerance_;
     const Vec3 apart = local - shift - surface_.centre[e];
-    if (apart.dot(apart) > least * least) return;
+    if (apart.dot(apart) > least * least)
+        return;
     const Vec3 foot = nearest_point(surface_, domain_.extruded(), e, local - shift) + shift;
     const Vec3 away = local - foot;
     const double distance = away.length();
-    if (distance > best.distance + tolerance_) return;
-    const double facing = distance > tolerance_
-                              ? std::fabs(away.dot(surface_.normal[e])) / distance
-                              : 1.0;
-    if (!better(distance, facing, e, best)) return;
+    if (distance > best.distance + tolerance_)
+        return;
+    const double facing =
+        distance > tolerance_ ? std::fabs(away.dot(surface_.normal[e])) / distance : 1.0;
+    if (!better(distance, facing, e, best))
+        return;
     best = {e, distance, facing, p - away};
 }
 
@@ -140,11 +153,13 @@ void Search::improve(std::size_t c, const std::vector<Candidate>& old, Candidate
     std::array<int, 6> seen;
     int count = 0;
     const auto homes = [&](std::size_t at) {
-        for (int h = home_first_[at]; h < home_first_[at + 1]; ++h) offer(p, home_element_[h], best);
+        for (int h = home_first_[at]; h < home_first_[at + 1]; ++h)
+            offer(p, home_element_[h], best);
     };
     homes(c);
     for (const int n : band_.neighbour[c]) {
-        if (n < 0 || n == static_cast<int>(c)) continue;
+        if (n < 0 || n == static_cast<int>(c))
+            continue;
         const int e = old[n].element;
         if (e >= 0 && std::find(seen.begin(), seen.begin() + count, e) == seen.begin() + count) {
             seen[count++] = e;
@@ -168,10 +183,12 @@ ClosestElements Search::run() {
         for (int round = 0; round < 3; ++round) {
             next.resize(ring.size());
             for_ranges(ring.size(), [&](std::size_t begin, std::size_t end) {
-                for (std::size_t r = begin; r < end; ++r) improve(ring[r], now, next[r]);
+                for (std::size_t r = begin; r < end; ++r)
+                    improve(ring[r], now, next[r]);
             });
             for_ranges(ring.size(), [&](std::size_t begin, std::size_t end) {
-                for (std::size_t r = begin; r < end; ++r) now[ring[r]] = next[r];
+                for (std::size_t r = begin; r < end; ++r)
+                    now[ring[r]] = next[r];
             });
         }
     ClosestElements out;
@@ -189,20 +206,25 @@ ClosestElements Search::run() {
 } // namespace
 
 Vec3 nearest_point(const Surface& s, bool extruded, int e, const Vec3& p) {
-    if (extruded) return nearest_on_segment(s.vertices[s.corners[e][0]], s.vertices[s.corners[e][1]], p);
+    if (extruded)
+        return nearest_on_segment(s.vertices[s.corners[e][0]], s.vertices[s.corners[e][1]], p);
     const Vec3 from = p - s.centre[e];
     const Vec3 across = from - s.normal[e] * from.dot(s.normal[e]);
     const double square = across.dot(across), radius_square = s.area[e] * (1 / 3.14159265358979);
-    if (square <= radius_square) return s.centre[e] + across;
+    if (square <= radius_square)
+        return s.centre[e] + across;
     return s.centre[e] + across * std::sqrt(radius_square / square);
 }
 
 Vec3 exact_nearest_point(const Surface& s, bool extruded, int e, const Vec3& p) {
-    if (extruded) return nearest_point(s, extruded, e, p);
+    if (extruded)
+        return nearest_point(s, extruded, e, p);
     const auto& q = s.corners[e];
     const Vec3 first = nearest_on_triangle(s.vertices[q[0]], s.vertices[q[1]], s.vertices[q[2]], p);
-    if (q[2] == q[3]) return first;
-    const Vec3 second = nearest_on_triangle(s.vertices[q[0]], s.vertices[q[2]], s.vertices[q[3]], p);
+    if (q[2] == q[3])
+        return first;
+    const Vec3 second =
+        nearest_on_triangle(s.vertices[q[0]], s.vertices[q[2]], s.vertices[q[3]], p);
     return (second - p).length() < (first - p).length() ? second : first;
 }
 

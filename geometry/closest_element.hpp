@@ -22,8 +22,8 @@ Vec3 nearest_point(const Surface&, bool extruded, int e, const Vec3& p);
 Vec3 exact_nearest_point(const Surface&, bool extruded, int e, const Vec3& p);
 
 /// Nearest elements for all cells, `moved` [nm] along -normal from where `surface` has them (empty:
-/// not moved). Of elements equally near (at a corner), the one that faces the cell most wins, then the
-/// more level one, so that mirrored shapes get mirrored choices.
+/// not moved). Of elements equally near (at a corner), the one that faces the cell most wins, then
+/// the more level one, so that mirrored shapes get mirrored choices.
 ClosestElements closest_elements(const Band&, const Surface&, const std::vector<double>& moved);
 
 } // namespace rille::geometry

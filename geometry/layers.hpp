@@ -10,8 +10,8 @@
 
 namespace rille::geometry {
 
-/// What a point of the front meets on its way into the solid: rows of the rate tables (-1: rate 0) and
-/// how much of each there is [nm]. The last layer has no end.
+/// What a point of the front meets on its way into the solid: rows of the rate tables (-1: rate 0)
+/// and how much of each there is [nm]. The last layer has no end.
 struct Layers {
     static constexpr int capacity = 16;
     int count = 0;
@@ -19,7 +19,8 @@ struct Layers {
     std::array<double, capacity> thickness{};
 
     void add(int table_row, double depth) {
-        if (count == capacity) return;
+        if (count == capacity)
+            return;
         row[count] = table_row;
         thickness[count++] = depth;
     }
@@ -42,7 +43,7 @@ Foot foot_of(const Vec3& p, double phi, const Vec3& nearest, const Vec3& normal,
 
 /// Finds the layers below points of the front.
 class LayerFinder {
-  public:
+public:
     LayerFinder(const Band&, const NormalRates&, const RateTables&, const Stack&,
                 const GrownFilms&);
 
@@ -59,8 +60,8 @@ class LayerFinder {
     void for_cell(std::size_t cell, const double* phi, double steep, int element, const Foot&,
                   double reach, Layers& out) const;
     /// Sides (bits, as in Slopes) across which the film that the cell lies in meets one that holds
-    /// still or recedes at less than half its rate, at `angle`: the front runs along that interface, and
-    /// what lies beyond has no say in it.
+    /// still or recedes at less than half its rate, at `angle`: the front runs along that
+    /// interface, and what lies beyond has no say in it.
     unsigned unseen_sides(std::size_t cell, const double* phi, int element, const Foot&,
                           double angle) const;
 
@@ -68,7 +69,7 @@ class LayerFinder {
     /// against the film the cell lies in: its phi is the distance to that interface.
     bool pinned(std::size_t cell, const double* phi, int element, double angle) const;
 
-  private:
+private:
     double grown(int element, Layers& out) const;
     unsigned slow_sides(std::size_t cell, const double* phi, int element, double angle) const;
     void stack_below(int element, Foot foot, double reach, Layers& out) const;
@@ -76,7 +77,8 @@ class LayerFinder {
     int row_of_film(int element, int film) const {
         return rates_.row(element, stack_.films()[film].material);
     }
-    /// How far the cell may still be reached at the rate of film `from`, and the film after it (or -1).
+    /// How far the cell may still be reached at the rate of film `from`, and the film after it (or
+    /// -1).
     double limit(std::size_t cell, const double* phi, double steep, int from, int& after) const;
 
     const Band& band_;

@@ -19,7 +19,8 @@ bool steepness_off(const Band& band, std::size_t c) {
     double least = 0, most = 0;
     for (int axis = 0; axis < 3; ++axis) {
         const int left = band.neighbour[c][2 * axis], right = band.neighbour[c][2 * axis + 1];
-        if (left < 0 && right < 0) continue;
+        if (left < 0 && right < 0)
+            continue;
         const double back = band.phi[c] - band.phi[left < 0 ? right : left];
         const double ahead = band.phi[c] - band.phi[right < 0 ? left : right];
         least += std::min(back * back, ahead * ahead);
@@ -31,7 +32,8 @@ bool steepness_off(const Band& band, std::size_t c) {
 
 /// How far the crossing between a cell and its neighbour moves [cells]; 0 if there is none.
 double crossing_shift(double a, double b, double new_a, double new_b) {
-    if ((a < 0) == (b < 0)) return 0;
+    if ((a < 0) == (b < 0))
+        return 0;
     return std::fabs(a / (a - b) - new_a / (new_a - new_b));
 }
 
@@ -47,8 +49,10 @@ double redistance(Band& band, const Surface& surface, const ClosestElements& clo
     });
     std::vector<int> changed;
     for (std::size_t c = 0; c < band.size(); ++c)
-        if (flag[c]) changed.push_back(static_cast<int>(c));
-    if (changed.empty()) return 0;
+        if (flag[c])
+            changed.push_back(static_cast<int>(c));
+    if (changed.empty())
+        return 0;
 
     const std::vector<double> old = band.phi;
     for (const int c : changed) {
@@ -67,14 +71,16 @@ double redistance(Band& band, const Surface& surface, const ClosestElements& clo
         const double distance = std::max((local - foot).length(), 1e-12 * h);
         band.phi[c] = old[c] < 0 ? -distance : distance;
     }
-    // Put back what moves the contour; what is put back may unsettle a neighbour, so until it holds.
+    // Put back what moves the contour; what is put back may unsettle a neighbour, so until it
+    // holds.
     for (bool settled = false; !settled;) {
         settled = true;
         for (const int c : changed) {
-            if (!flag[c]) continue;
+            if (!flag[c])
+                continue;
             for (const int n : band.neighbour[c]) {
-                if (n < 0 || crossing_shift(old[c], old[n], band.phi[c], band.phi[n]) <=
-                                 redistance_limit)
+                if (n < 0 ||
+                    crossing_shift(old[c], old[n], band.phi[c], band.phi[n]) <= redistance_limit)
                     continue;
                 band.phi[c] = old[c];
                 flag[c] = 0;

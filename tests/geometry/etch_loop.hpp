@@ -37,13 +37,14 @@ inline geometry::Stack one_film(int material = 0) {
 
 /// Mask (material 1) on [0, thickness], film (material 0) below.
 inline geometry::Stack masked(double thickness) {
-    return geometry::Stack({{"mask", 1, thickness, 0},
-                            {"film", 0, 0, -std::numeric_limits<double>::infinity()}});
+    return geometry::Stack(
+        {{"mask", 1, thickness, 0}, {"film", 0, 0, -std::numeric_limits<double>::infinity()}});
 }
 
 inline std::vector<double> even_angles(double low, double high, int count) {
     std::vector<double> out;
-    for (int a = 0; a <= count; ++a) out.push_back(low + (high - low) * a / count);
+    for (int a = 0; a <= count; ++a)
+        out.push_back(low + (high - low) * a / count);
     return out;
 }
 
@@ -58,7 +59,8 @@ inline geometry::NormalRates make_rates(const Surface& s, const std::vector<doub
     for (int e = 0; e < static_cast<int>(s.size()); ++e) {
         for (int m = 0; m < materials; ++m) {
             r.material.push_back(m);
-            for (const double a : angles) r.table.push_back(law(s, e, m, a));
+            for (const double a : angles)
+                r.table.push_back(law(s, e, m, a));
         }
         r.first_row.push_back(static_cast<int>(r.material.size()));
     }
@@ -100,24 +102,30 @@ inline LoopResult etch(Front& front, const Loop& loop, double time) {
         out.sub_steps += report.sub_steps;
         out.shift += report.redistance_shift;
         out.time += report.time;
-        if (report.time == 0) break;
+        if (report.time == 0)
+            break;
     }
     return out;
 }
 
 /// Largest |phi(x)| distance of the vertices of the front to an exact shape: how far it is off.
-template <class Distance> double worst_vertex(const Surface& s, const Distance& exact) {
+template <class Distance>
+double worst_vertex(const Surface& s, const Distance& exact) {
     double most = 0;
-    for (const Vec3& v : s.vertices) most = std::max(most, std::fabs(exact(v)));
+    for (const Vec3& v : s.vertices)
+        most = std::max(most, std::fabs(exact(v)));
     return most;
 }
 
 /// Mask of the given thickness on z <= 0 with an opening |x| < half: exact distance.
 inline double mask_distance(const Vec3& p, double half, double thickness) {
     const double in = half - std::fabs(p.x); // > 0 inside the opening
-    if (p.z > thickness) return in < 0 ? p.z - thickness : std::hypot(in, p.z - thickness);
-    if (in >= 0 && p.z >= 0) return std::min(in, p.z);
-    if (in < 0 && p.z >= 0) return -std::min(-in, thickness - p.z);
+    if (p.z > thickness)
+        return in < 0 ? p.z - thickness : std::hypot(in, p.z - thickness);
+    if (in >= 0 && p.z >= 0)
+        return std::min(in, p.z);
+    if (in < 0 && p.z >= 0)
+        return -std::min(-in, thickness - p.z);
     return -std::min(in > 0 ? -p.z : std::hypot(in, p.z), thickness - p.z);
 }
 

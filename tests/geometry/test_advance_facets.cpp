@@ -19,7 +19,8 @@ constexpr double steepest = 2.291288; // slope of largest yield
 /// Speed of a lit surface, Y(t) cos t with Y = s^2 exp(-0.8 (s - 1)), s = 1 / cos t.
 double sputter(double angle) {
     const double cosine = std::cos(angle);
-    if (std::fabs(angle) >= pi / 2 || cosine < 1e-9) return 0;
+    if (std::fabs(angle) >= pi / 2 || cosine < 1e-9)
+        return 0;
     return std::exp(-0.8 * (1 / cosine - 1)) / cosine;
 }
 
@@ -68,8 +69,8 @@ void take(FacetErrors& out, double error, double length, double& total) {
 /// Solid corner whose facet grows to `width` cells; its wall stands on a floor far below.
 FacetErrors ridge(double width, double shift, double scale = 1) {
     const double time = width / 0.474004, deep = -2.2 * time - 20;
-    const Domain d = make_domain(Symmetry::extruded, Sides::mirror, 1,
-                                 2 * static_cast<int>(time + 10));
+    const Domain d =
+        make_domain(Symmetry::extruded, Sides::mirror, 1, 2 * static_cast<int>(time + 10));
     Front front(
         d,
         [=](const Vec3& p) {
@@ -110,7 +111,8 @@ FacetErrors valley(double width, double shift) {
     const Surface s = extract_surface(front);
     for (std::size_t e = 0; e < s.size(); ++e) {
         const Vec3 p(std::fabs(s.centre[e].x - shift), 0, s.centre[e].z);
-        if (p.x < 0.9 * time) take(out, distance_to(exact, p), s.area[e], total);
+        if (p.x < 0.9 * time)
+            take(out, distance_to(exact, p), s.area[e], total);
     }
     out.mean /= total;
     return out;
@@ -135,8 +137,8 @@ TEST_CASE("ridge facet converges to the hull solution", "[advance][facet]") {
 
 TEST_CASE("valley converges to the hull solution", "[advance][facet]") {
     // Oracle, source: as for the ridge, a groove of slope 2.29 with a rounding bottom.
-    // Tolerance: mean 0.5 cell, largest 1.0. The order asked is 0.9; errors here start at a tenth of a
-    // cell and grow slowly at the two contacts, which measures as 0.7.
+    // Tolerance: mean 0.5 cell, largest 1.0. The order asked is 0.9; errors here start at a tenth
+    // of a cell and grow slowly at the two contacts, which measures as 0.7.
     const FacetErrors a = valley(10, 0.3), b = valley(20, 0.3);
     CAPTURE(a.mean, a.most, b.mean, b.most);
     for (const FacetErrors& e : {a, b}) {

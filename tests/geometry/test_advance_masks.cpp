@@ -65,7 +65,8 @@ WedgeErrors wedge(double a, double depth, double shift, double base) {
     Loop loop = masked_loop(base);
     loop.angles = even_angles(-pi, pi, 720);
     loop.law = [=](const Surface& s, int e, int material, double angle) {
-        if (material == 1) return 0.0;
+        if (material == 1)
+            return 0.0;
         const bool lit = std::fabs(s.centre[e].x - shift) < opening / 2 && s.normal[e].z > 0;
         return a + (lit ? (1 - a) * std::max(0.0, std::cos(angle)) : 0.0);
     };
@@ -74,13 +75,16 @@ WedgeErrors wedge(double a, double depth, double shift, double base) {
     WedgeErrors out;
     for (const Vec3& v : extract_surface(front).vertices) {
         const double x = std::fabs(v.x - shift) - opening / 2, z = v.z - base;
-        if (z > -0.5) continue;
+        if (z > -0.5)
+            continue;
         const double line = x * std::cos(beta) - (z + depth) * std::sin(beta);
         const double wall = z >= tangent ? std::hypot(x, z) - a * depth : line;
-        if (x < -4) out.floor = std::max(out.floor, std::fabs(z + depth));
+        if (x < -4)
+            out.floor = std::max(out.floor, std::fabs(z + depth));
         else if (z < -depth + 4)
             out.foot = std::max(out.foot, std::min(std::fabs(wall), std::fabs(z + depth)));
-        else if (z < -4 && x > -4) out.wall = std::max(out.wall, std::fabs(wall));
+        else if (z < -4 && x > -4)
+            out.wall = std::max(out.wall, std::fabs(wall));
     }
     return out;
 }
@@ -88,9 +92,10 @@ WedgeErrors wedge(double a, double depth, double shift, double base) {
 } // namespace
 
 TEST_CASE("isotropic undercut is a quarter circle", "[advance][mask]") {
-    // Oracle: floor at depth r, quarter circles of radius r about the mask edges, area w r + pi r^2/2.
-    // Source: derived here. Tolerance: 0.25 cell asked at 20 cells per opening. What the scheme
-    // holds over grid offsets is 0.5 cell on the arc and 2.5 % of the area (a corner starts the fan).
+    // Oracle: floor at depth r, quarter circles of radius r about the mask edges, area w r + pi
+    // r^2/2. Source: derived here. Tolerance: 0.25 cell asked at 20 cells per opening. What the
+    // scheme holds over grid offsets is 0.5 cell on the arc and 2.5 % of the area (a corner starts
+    // the fan).
     double arcs = 0, area = 0;
     for (const double shift : {0.0, 0.25, 0.7})
         for (const double base : {0.0, 0.3, 0.5}) {
@@ -130,14 +135,16 @@ TEST_CASE("a deep wedge stays straight", "[advance][mask][long]") {
 }
 
 TEST_CASE("a tilted beam cuts a parallel slot", "[advance][mask]") {
-    // Oracle: floor flat at depth R t cos(alpha), slot of width w - h tan(alpha) with walls along the
-    // beam, shifted by depth tan(alpha). Source: derived here. Tolerance: floor 0.05 cell, walls 0.5.
+    // Oracle: floor flat at depth R t cos(alpha), slot of width w - h tan(alpha) with walls along
+    // the beam, shifted by depth tan(alpha). Source: derived here. Tolerance: floor 0.05 cell,
+    // walls 0.5.
     const double alpha = 10 * pi / 180, w = opening, thickness = mask_thickness, time = 30;
     Front front = masked_front(60, 0, 0);
     Loop loop = masked_loop(0);
     loop.angles = even_angles(-pi, pi, 720);
     loop.law = [=](const Surface& s, int e, int material, double angle) {
-        if (material == 1) return 0.0;
+        if (material == 1)
+            return 0.0;
         const double x = s.centre[e].x - s.centre[e].z * -std::tan(alpha); // back to z = 0
         const bool lit = x > -w / 2 + thickness * std::tan(alpha) && x < w / 2;
         return lit ? std::max(0.0, std::cos(angle + alpha)) : 0.0;
@@ -147,9 +154,11 @@ TEST_CASE("a tilted beam cuts a parallel slot", "[advance][mask]") {
     const double left = -w / 2 + thickness * slope, right = w / 2;
     double floor = 0, wall = 0;
     for (const Vec3& v : extract_surface(front).vertices) {
-        if (v.z > -4) continue;
+        if (v.z > -4)
+            continue;
         const double x = v.x + v.z * slope; // along the beam up to z = 0
-        if (x > left + 4 && x < right - 4) floor = std::max(floor, std::fabs(v.z + depth));
+        if (x > left + 4 && x < right - 4)
+            floor = std::max(floor, std::fabs(v.z + depth));
         else if (v.z > -depth + 4)
             wall = std::max(wall, std::min(std::fabs(x - left), std::fabs(x - right)));
     }
@@ -179,8 +188,10 @@ TEST_CASE("a mask of half a cell holds still", "[advance][mask]") {
         const LoopResult r = etch(front, loop, 50);
         double most = 0, deepest = 0;
         for (const Vec3& v : extract_surface(front).vertices) {
-            if (std::fabs(v.x) > 12) most = std::max(most, std::fabs(v.z - base - 0.5));
-            if (std::fabs(v.x) < 6) deepest = std::min(deepest, v.z);
+            if (std::fabs(v.x) > 12)
+                most = std::max(most, std::fabs(v.z - base - 0.5));
+            if (std::fabs(v.x) < 6)
+                deepest = std::min(deepest, v.z);
         }
         CAPTURE(base, most, deepest, r.sub_steps);
         CHECK(r.sub_steps >= 1000);
