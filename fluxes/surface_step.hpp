@@ -10,15 +10,21 @@
 #include "geometry/surface.hpp"
 
 #include <cstdint>
+#include <memory>
 #include <vector>
 
 namespace rille::fluxes {
+
+class IonTables;
 
 /// What the plasma sends and how finely it is followed.
 struct Sources {
     std::vector<IonSource> ions;         ///< in the order of Mechanism::ions
     std::vector<NeutralSource> neutrals; ///< in the order of Mechanism::neutrals
     double wafer_temperature_k = 300;
+    /// Of `ions`, the tallies of the mechanism and the symmetry of the domain. Build once per plasma
+    /// state and share; if null every call of solve_surface builds its own.
+    std::shared_ptr<const IonTables> ion_tables;
 };
 struct Sampling {
     int rays_per_element = 64;
