@@ -122,44 +122,78 @@ void add_default_places(Entry& places, const Case& result) {
     add("bottom", fmt::format("{} above {} bottom", length, film.name));
 }
 
-struct Metric {
-    const char* name;
-    Dimension dimension;
+/// A quantity that targets may name, and what it measures (nothing: a plain number).
+struct Measurable {
+    std::string name;
+    std::optional<Dimension> dimension;
 };
-constexpr Metric standard_metrics[] = {
-    {"bow", Dimension::length},         {"mask left", Dimension::length},
-    {"depth", Dimension::length},       {"edge depth", Dimension::length},
-    {"undercut", Dimension::length},    {"microtrench", Dimension::length},
-    {"sidewall angle", Dimension::angle}, {"facet angle", Dimension::angle},
-};
+
+std::vector<Measurable> measurable(const Entry& root, const Case& result) {
+    const Dimension length = Dimension::length, angle = Dimension::angle;
+    std::vector<Measurable> list;
+    for (const auto& [label, entry] : root["measure"]["cd"].members)
+        for (const char* kind : {" cd", " cd_change", " cd y", " cd area"})
+            if (result.domain.symmetry == geometry::Symmetry::full || kind[3] != ' ')
+                list.push_back({label + kind, length});
+    for (const char* name : {"bow", "bow cd", "bow depth", "depth centre", "depth edge",
+                             "microtrench depth", "undercut", "mask left"})
+        list.push_back({name, length});
+    for (const char* name : {"sidewall angle left", "sidewall angle right", "facet angle"})
+        list.push_back({name, angle});
+    list.push_back({"selectivity", std::nullopt});
+    for (const geometry::Film& film : result.films)
+        if (film.name != "mask") list.push_back({film.name + " loss", length});
+    return list;
+}
 
 struct TargetReader {
     const Entry& entry;
-    const std::string& metric;
-    const std::vector<std::string>& lengths; ///< metrics of this case beside the standard ones
+    const std::string& metric; ///< as written; "NAME of OPENING" where there are several
+    const std::vector<Measurable>& known;
+    const std::vector<std::string>& openings;
     Problems& problems;
 
     void wrong(const std::string& message) { problems.add(entry.at, entry.path, message); }
 
-    /// What the metric measures; nothing and a problem if there is no such metric.
-    std::optional<Dimension> dimension() {
-        std::vector<std::string> known;
-        for (const Metric& standard : standard_metrics) {
-            if (metric == standard.name) return standard.dimension;
-            known.emplace_back(standard.name);
+    /// What the target is about; nullptr and a problem if there is no such quantity.
+    const Measurable* quantity() {
+        std::string name = metric;
+        const std::size_t of = metric.rfind(" of ");
+        if (of != std::string::npos) {
+            const std::string opening = metric.substr(of + 4);
+            name = metric.substr(0, of);
+            if (std::find(openings.begin(), openings.end(), opening) == openings.end()) {
+                wrong(fmt::format("no opening is called {}; there are: {}{}", quoted(opening),
+                                  listed(openings, 8), did_you_mean(opening, openings)));
+                return nullptr;
+            }
         }
-        if (std::find(lengths.begin(), lengths.end(), metric) != lengths.end())
-            return Dimension::length;
-        known.insert(known.end(), lengths.begin(), lengths.end());
-        wrong(fmt::format("no quantity is called {}; there are: {}{}", quoted(metric),
-                          listed(known, 14), did_you_mean(metric, known)));
-        return std::nullopt;
+        std::vector<std::string> names;
+        for (const Measurable& one : known) {
+            if (one.name == name) return &one;
+            names.push_back(one.name);
+        }
+        wrong(fmt::format("no quantity is called {}; there are: {}{}", quoted(name),
+                          listed(names, 24), did_you_mean(name, names)));
+        return nullptr;
     }
 
-    std::optional<double> value(const std::string& text, Dimension dimension) {
-        const QuantityText read = parse_quantity(text, dimension);
-        if (read.error.empty()) return read.value;
-        wrong(read.error);
+    std::optional<double> value(const std::string& text, std::optional<Dimension> dimension) {
+        std::string error;
+        double result = 0;
+        if (dimension) {
+            const QuantityText read = parse_quantity(text, *dimension);
+            error = read.error;
+            result = read.value;
+        } else {
+            const NumberText read = split_number(text);
+            error = read.error;
+            if (error.empty() && !read.unit.empty())
+                error = quoted(text) + ": a number without a unit is due";
+            result = read.value;
+        }
+        if (error.empty()) return result;
+        wrong(error);
         return std::nullopt;
     }
 
@@ -167,16 +201,17 @@ struct TargetReader {
         Target target;
         target.metric = metric;
         target.text = entry.text;
-        const std::optional<Dimension> due = dimension();
-        if (!due) return target;
+        const Measurable* measured = quantity();
+        if (!measured) return target;
+        const std::optional<Dimension> due = measured->dimension;
         const std::string& text = entry.text;
         const std::size_t to = text.find(" to ");
         if (text.rfind("at least ", 0) == 0) {
-            target.at_least = value(text.substr(9), *due);
+            target.at_least = value(text.substr(9), due);
         } else if (text.rfind("at most ", 0) == 0) {
-            target.at_most = value(text.substr(8), *due);
+            target.at_most = value(text.substr(8), due);
         } else if (to != std::string::npos) {
-            read_range(text.substr(0, to), trimmed(text.substr(to + 4)), *due, target);
+            read_range(text.substr(0, to), trimmed(text.substr(to + 4)), due, target);
         } else {
             const bool sign = text.find_first_of("<>=") != std::string::npos;
             wrong(fmt::format("{} is not a goal; write at least X, at most X, or X to Y{}",
@@ -186,7 +221,8 @@ struct TargetReader {
     }
 
     /// "55 to 65 nm": the unit of the upper end holds for the lower one too.
-    void read_range(std::string low, const std::string& high, Dimension due, Target& target) {
+    void read_range(std::string low, const std::string& high, std::optional<Dimension> due,
+                    Target& target) {
         const NumberText first = split_number(low), last = split_number(high);
         if (first.error.empty() && first.unit.empty() && last.error.empty())
             low += " " + last.unit;
@@ -213,14 +249,11 @@ void build_measure(Entry& root, Case& result, Problems& problems) {
 }
 
 void build_targets(const Entry& root, Case& result, Problems& problems) {
-    std::vector<std::string> lengths;
-    for (const auto& [label, entry] : root["measure"]["cd"].members)
-        lengths.push_back(label + " cd");
-    for (const geometry::Film& film : result.films)
-        if (film.name != "mask") lengths.push_back(film.name + " loss");
+    const std::vector<Measurable> known = measurable(root, result);
+    const std::vector<std::string> openings = opening_names(result);
     for (const auto& [metric, entry] : root["targets"].members)
         if (entry.is_good)
-            result.targets.push_back(TargetReader{entry, metric, lengths, problems}.read());
+            result.targets.push_back(TargetReader{entry, metric, known, openings, problems}.read());
     for (const auto& [key, entry] : root["tool_log"].members) {
         const YamlNode& raw = entry.raw;
         result.tool_log.push_back(key + ": " +

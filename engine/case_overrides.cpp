@@ -1,6 +1,7 @@
 // SPDX-License-Identifier: Apache-2.0
 #include "engine/case_build.hpp"
 
+#include "engine/case_schema.hpp"
 #include "engine/words.hpp"
 
 #include <fmt/format.h>
@@ -48,6 +49,33 @@ YamlNode* descend(YamlNode& node, std::string& rest) {
     return nullptr;
 }
 
+/// The rule below `rule` for a key; nullptr where the table knows none.
+const Rule* rule_below(const Rule* rule, const std::string& key) {
+    if (!rule) return nullptr;
+    if (rule->kind == Rule::Kind::map) return rule->member(key);
+    return rule->kind == Rule::Kind::dictionary ? &rule->members[0] : nullptr;
+}
+
+/// Makes the maps that lead to the last key of `rest`, as far as they are maps of the table that
+/// may be left out of a file ("sampling" of sampling.seed). `rest` keeps what could not be made.
+YamlNode* make_maps(YamlNode* node, const Rule* rule, std::string& rest, const Location& at) {
+    for (std::size_t dot = rest.find('.'); dot != std::string::npos; dot = rest.find('.')) {
+        const std::string key = rest.substr(0, dot);
+        const bool in_map = rule && rule->kind == Rule::Kind::map && node->is_map();
+        rule = rule_below(rule, key);
+        const bool is_branch = rule && (rule->kind == Rule::Kind::map ||
+                                        rule->kind == Rule::Kind::dictionary);
+        if (!in_map || !is_branch) break;
+        YamlNode made;
+        made.kind = YamlNode::Kind::map;
+        made.at = at;
+        node->members.push_back({key, at, std::move(made)});
+        node = &node->members.back().value;
+        rest = rest.substr(dot + 1);
+    }
+    return node;
+}
+
 void apply_override(YamlNode& root, const std::string& text, Problems& problems) {
     const Location at{"--set " + text, 0, 0};
     const std::size_t equals = text.find('=');
@@ -63,12 +91,17 @@ void apply_override(YamlNode& root, const std::string& text, Problems& problems)
     if (!own.empty()) return;
     place_everywhere(value, at);
     YamlNode* node = &root;
+    const Rule* rule = &case_rules();
     std::string rest = path;
     while (!rest.empty()) {
+        const std::string before = rest;
         YamlNode* next = descend(*node, rest);
         if (!next) break;
+        const std::size_t used = before.size() - rest.size() - (rest.empty() ? 0 : 1);
+        rule = rule_below(rule, before.substr(0, used));
         node = next;
     }
+    node = make_maps(node, rule, rest, at);
     const bool new_key = !rest.empty() && rest.find('.') == std::string::npos &&
                          (node->is_map() || node->is_empty());
     if (rest.empty()) {

@@ -45,7 +45,7 @@ struct StepBuilder {
 
     void refuse_without_until() {
         for (const char* key : {"no_longer_than", "must_end"})
-            if (entry[key].is_given)
+            if (entry[key].is_given && entry[key].number != 0)
                 problems.add(entry[key].at, entry[key].path,
                              "belongs to a step with until; this one ends by its time");
     }

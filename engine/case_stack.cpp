@@ -69,7 +69,8 @@ struct StackBuilder {
         if (ended)
             problems.add(film.at, film.path, "lies below a semi-infinite film; semi-infinite is "
                                              "for the last film of the stack");
-        if (film_index(result, name) >= 0 && film["name"].is_good)
+        if (film_index(result, name) >= 0 && film["name"].is_good &&
+            !problems.any_at(film["name"].at))
             problems.add(film["name"].at, film["name"].path,
                          fmt::format("the name {} is used twice", quoted(name)));
         if (name == "mask" || name == "liner")
@@ -78,7 +79,7 @@ struct StackBuilder {
                                      quoted(name), name));
         geometry::Film made;
         made.name = name;
-        made.material = material_index(result, film["material"].text);
+        made.material = material_index(result, film["material"]);
         made.top = top;
         made.bottom = bottom_of(thickness);
         top = made.bottom;
@@ -107,11 +108,12 @@ struct StackBuilder {
 
 } // namespace
 
-int material_index(Case& result, const std::string& name) {
+int material_index(Case& result, const Entry& name) {
     auto& list = result.materials;
-    const auto found = std::find(list.begin(), list.end(), name);
+    if (!name.is_good) return 0;
+    const auto found = std::find(list.begin(), list.end(), name.text);
     if (found != list.end()) return static_cast<int>(found - list.begin());
-    list.push_back(name);
+    list.push_back(name.text);
     return static_cast<int>(list.size()) - 1;
 }
 
@@ -151,7 +153,7 @@ void build_stack(const Entry& root, Case& result, Problems& problems) {
     if (mask.is_given) {
         geometry::Film film;
         film.name = "mask";
-        film.material = material_index(result, mask["material"].text);
+        film.material = material_index(result, mask["material"]);
         film.top = mask["thickness"].is_good ? mask["thickness"].number : 1;
         film.bottom = 0;
         result.films.push_back(film);
@@ -173,7 +175,7 @@ void build_stack(const Entry& root, Case& result, Problems& problems) {
                      "the last film of the stack needs thickness: semi-infinite");
     if (root["liner"].is_given) {
         result.liner_thickness = root["liner"]["thickness"].number;
-        result.liner_material = material_index(result, root["liner"]["material"].text);
+        result.liner_material = material_index(result, root["liner"]["material"]);
     }
 }
 

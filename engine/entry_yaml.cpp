@@ -55,6 +55,7 @@ bool is_block(const Entry& entry) { return !entry.members.empty() || !entry.item
 std::string inline_text(const Entry& entry) {
     switch (entry.rule->kind) {
     case Kind::anything: return raw_yaml(entry.raw);
+    case Kind::truth: return entry.text;
     case Kind::quantities: return entry.text; // "60 nm" or "[60 nm, 80 nm]"
     case Kind::list: return "[]";
     case Kind::map:

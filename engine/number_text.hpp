@@ -1,11 +1,13 @@
 // SPDX-License-Identifier: Apache-2.0
 #pragma once
 
-#include "engine/units.hpp" // shortest: how files print numbers
-
 #include <string>
 
 namespace rille::engine {
+
+/// The shortest decimal text that reads back as the same bits ("nan", "inf", "-inf" otherwise), so
+/// that bitwise identical runs write identical files.
+std::string shortest(double value);
 
 /// A value as a person reads it, with no more decimals than its error deserves: error 0.34 gives
 /// "60.12" -> "60.1". Between 0 and 2 decimals; error <= 0 means exact to what is shown.

@@ -18,7 +18,7 @@ const char* standing_word(fluxes::Standing);
 struct ParameterForm {
     std::optional<Dimension> dimension{}; ///< none: a plain number
     Range range{};
-    std::optional<Dimension> at{};        ///< `at: 500 eV` is allowed
+    std::optional<Dimension> at{}; ///< `at: 500 eV` is allowed
     bool at_required = false;
     bool activation = false; ///< `activation: 0.108 eV` is allowed
 };

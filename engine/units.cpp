@@ -280,10 +280,6 @@ QuantityText parse_quantity(const std::string& text, Dimension dimension) {
     return {0, fmt::format("{}; {}", foreign_unit(trimmed(text), number.unit, dimension), form)};
 }
 
-std::string shortest(double value) {
-    return fmt::format("{}", value);
-}
-
 std::string format_quantity(double inside, Dimension dimension) {
     const UnitDefinition& unit = units_of(dimension).front();
     return fmt::format("{:.12g} {}", inside / unit.factor - unit.offset, unit.text);

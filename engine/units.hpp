@@ -58,8 +58,6 @@ struct QuantityText {
 };
 QuantityText parse_quantity(const std::string& text, Dimension);
 
-/// The shortest decimal text that reads back as the same double.
-std::string shortest(double value);
 /// Value in inside units with the dimension's first unit: "60 nm". Reads back within round-off.
 std::string format_quantity(double inside, Dimension);
 

@@ -1,6 +1,8 @@
 // SPDX-License-Identifier: Apache-2.0
 #include "engine/yield_reader.hpp"
 
+#include "engine/number_text.hpp"
+
 #include "engine/words.hpp"
 
 #include <fmt/format.h>
