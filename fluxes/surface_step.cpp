@@ -3,6 +3,7 @@
 
 #include "fluxes/coupling.hpp"
 #include "fluxes/direct_ions.hpp"
+#include "fluxes/ion_tables.hpp"
 #include "fluxes/reflected_ions.hpp"
 #include "geometry/check.hpp"
 
@@ -68,8 +69,12 @@ IonArrivals gather_ions(const Setting& s, const std::vector<IonReflection>& refl
     if (s.sources.ions.empty())
         return ions;
     const Sampling& sampling = s.sampling;
+    auto tables = s.sources.ion_tables;
+    if (!tables)
+        tables = std::make_shared<const IonTables>(s.domain.symmetry, s.sources.ions,
+                                                   s.mechanism.tallies);
     ions.direct.emplace(
-        s.domain, s.surface, s.caster, s.sources.ions, s.mechanism.tallies,
+        s.domain, s.surface, s.caster, tables,
         DirectIons::Options{sampling.ion_directions, sampling.seed, sampling.refresh});
     ReflectedIons bounced;
     if (sampling.ions_per_species > 0 && m > 0 && reflects(reflection)) {

@@ -10,15 +10,21 @@
 #include "geometry/surface.hpp"
 
 #include <cstdint>
+#include <memory>
 #include <vector>
 
 namespace rille::fluxes {
+
+class IonTables;
 
 /// What the plasma sends and how finely it is followed.
 struct Sources {
     std::vector<IonSource> ions;         ///< in the order of Mechanism::ions
     std::vector<NeutralSource> neutrals; ///< in the order of Mechanism::neutrals
     double wafer_temperature_k = 300;
+    /// Of `ions`, the tallies of the mechanism and the symmetry of the domain. Build once per
+    /// plasma state and share; if null every call of solve_surface builds its own.
+    std::shared_ptr<const IonTables> ion_tables;
 };
 struct Sampling {
     int rays_per_element = 64;
@@ -37,8 +43,8 @@ struct MaterialsInReach {
 /// Everything about one surface at one instant. Vectors over elements unless said otherwise.
 struct SurfaceStep {
     geometry::NormalRates rates;
-    std::vector<SurfaceResponse> response;    ///< of the outermost material, at the element's normal
-    std::vector<std::vector<double>> neutral; ///< [species][element] impinging flux [nm^-2 s^-1]
+    std::vector<SurfaceResponse> response; ///< of the outermost material, at the element's normal
+    std::vector<std::vector<double>> neutral;  ///< [species][element] impinging flux [nm^-2 s^-1]
     std::vector<std::vector<double>> ion_flux; ///< [species][element] direct, [nm^-2 s^-1]
     /// rate_batch[b][e]: the rate had only batch b been used; their spread is the sampling error.
     std::vector<std::vector<double>> rate_batch;
