@@ -36,13 +36,12 @@ class ExtrudedGather {
         });
         for (std::size_t s = 0; s < ions; ++s) {
             flux_row_.push_back(averaged_rows(tables_.flux_tally(static_cast<int>(s)), s));
-            std::vector<double> missing(count);
+            std::vector<double> own(count);
             over_elements([&](int e) {
-                missing[e] = average_.of(gathered_.flux[s], e) -
-                             on_row(tables_.angles(), &flux_row_[s][e * tables_.angles().size()],
-                                    own_angle(e));
+                own[e] = on_row(tables_.angles(), &flux_row_[s][e * tables_.angles().size()],
+                                own_angle(e));
             });
-            missing_.push_back(std::move(missing));
+            own_flux_.push_back(std::move(own));
         }
         for (std::size_t m = 0; m < tables_.tallies().size(); ++m) tabulate(static_cast<int>(m));
         return std::move(gathered_);
@@ -91,17 +90,20 @@ class ExtrudedGather {
         over_elements([&](int e) {
             float* row = &gathered_.row[m][e * angles];
             const float* flux = &flux_row_[ion][e * angles];
+            const double own = own_flux_[ion][e];
+            const double missing = average_.of(gathered_.flux[ion], e) - own;
             for (std::size_t k = 0; k < angles; ++k)
-                row[k] = static_cast<float>(row[k] * correction(missing_[ion][e], flux[k]));
+                row[k] = static_cast<float>(row[k] * correction(missing, own, flux[k]));
             gathered_.tally[m][e] = on_row(tables_.angles(), row, own_angle(e));
         });
     }
 
-    /// Adds the flux that point samples and the averaged normal miss, in proportion to the tally;
-    /// bounded, so that normals turned out of all beams stay without.
-    static double correction(double missing, double flux) {
-        if (!(flux > 0)) return 1.0;
-        return std::clamp(1.0 + missing / flux, 0.5, 2.0);
+    /// Brings in the flux that point samples and the averaged normal miss: as an amount where the
+    /// turned normal receives more than the own one, in proportion where it receives less; bounded,
+    /// so that normals turned out of all beams stay without.
+    static double correction(double missing, double own_flux, double flux) {
+        const double scale = std::max(own_flux, flux);
+        return scale > 0 ? std::clamp(1.0 + missing / scale, 0.5, 2.0) : 1.0;
     }
 
     const geometry::Surface& surface_;
@@ -111,7 +113,7 @@ class ExtrudedGather {
     std::vector<geometry::Vec3> normal_;
     std::vector<std::vector<Visible>> seen_;
     std::vector<std::vector<float>> flux_row_;  ///< [ion], like Gathered::row
-    std::vector<std::vector<double>> missing_;  ///< [ion][e]: conserved flux minus the row's
+    std::vector<std::vector<double>> own_flux_; ///< [ion][e]: the row at the element's own normal
     DirectIons::Gathered gathered_;
 };
 

@@ -8,6 +8,7 @@
 #include <tbb/parallel_for.h>
 
 #include <algorithm>
+#include <array>
 #include <cmath>
 
 namespace rille::fluxes {
@@ -94,14 +95,15 @@ class FullGather {
             const ScrambledPoints points(
                 stream_key(options_.seed, stream, options_.refresh, e, ion, b));
             for (int k = 0; k < per_batch_; ++k) {
-                const IonSample ion_sample =
-                    source.distribution.sample(points.four(static_cast<std::uint32_t>(k)));
+                const auto index = static_cast<std::uint32_t>(k);
+                const IonSample ion_sample = source.distribution.sample(points.four(index));
+                const Vec3 at = point_on(e, points.pair(index, 2));
                 const Vec3 from = -ion_sample.direction;
                 const double facing = from.dot(own);
                 const bool seen = facing > 0
-                                      ? caster_.trace(surface_.centre[e], from, e).kind ==
+                                      ? caster_.trace(at, from, e).kind ==
                                             Hit::Kind::open
-                                      : reached_from_behind(surface_.centre[e], from);
+                                      : reached_from_behind(at, from);
                 if (!seen) continue;
                 if (facing > 0) gathered_.flux[ion][e] += share * facing / from.z;
                 arrivals.push_back({from.z, from.x * hx + from.y * hy, share / from.z,
@@ -111,11 +113,23 @@ class FullGather {
         return arrivals;
     }
 
+    /// Point spread evenly over the element (two triangles with the diagonal b-d), so that the flux
+    /// is the element's mean and not that of its centre.
+    Vec3 point_on(int e, const std::array<double, 2>& u) const {
+        const auto& corner = surface_.corners[e];
+        const Vec3 a = surface_.vertices[corner[0]], b = surface_.vertices[corner[1]];
+        const Vec3 c = surface_.vertices[corner[2]], d = surface_.vertices[corner[3]];
+        const double first = (b - a).cross(d - a).length(), second = (b - c).cross(d - c).length();
+        const double share = first / (first + second);
+        const bool low = u[0] < share || second == 0;
+        const double v = std::sqrt(low ? u[0] / share : (u[0] - share) / (1 - share));
+        return (low ? a : c) * (1 - v) + (b * (1 - u[1]) + d * u[1]) * v;
+    }
     /// A direction behind the element's own plane matters only for turned normals, next to a convex
     /// edge: an ion from there must get within a cell and a half of the element.
-    bool reached_from_behind(const Vec3& centre, const Vec3& from) const {
-        const double path = (caster_.z_open() - centre.z) / from.z;
-        Vec3 origin = centre + from * path, direction = -from;
+    bool reached_from_behind(const Vec3& at, const Vec3& from) const {
+        const double path = (caster_.z_open() - at.z) / from.z;
+        Vec3 origin = at + from * path, direction = -from;
         fold(origin.x, direction.x, domain_.x_min(), domain_.width_x());
         fold(origin.y, direction.y, domain_.y_min(), domain_.width_y());
         const Hit hit = caster_.trace(origin, direction, -1);
