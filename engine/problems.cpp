@@ -31,6 +31,11 @@ InputError::InputError(std::vector<Problem> problems)
     : std::runtime_error(report(problems)), problems_(std::move(problems)) {}
 
 void Problems::add(const Location& at, const std::string& path, const std::string& message) {
+    // A value that is copied to several places of the case is wrong only once.
+    for (const Problem& known : problems_)
+        if (known.line == at.line && known.line > 0 && known.column == at.column &&
+            known.file == at.file && known.message == message)
+            return;
     problems_.push_back({at.file, at.line, at.column, path, message});
 }
 

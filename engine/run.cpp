@@ -12,9 +12,8 @@
 namespace rille::engine {
 namespace {
 
-/// The state of the front as files and metrics want it. `solved` may be null.
-SurfaceState snapshot(const Case& the_case, Simulation& simulation,
-                      const fluxes::SurfaceStep* solved) {
+/// The state of the front as files and metrics want it.
+SurfaceState snapshot(const Case& the_case, Simulation& simulation) {
     SurfaceState state;
     state.time_s = simulation.time_s();
     const std::size_t step = std::min(simulation.step_index(), the_case.steps.size() - 1);
@@ -22,16 +21,13 @@ SurfaceState snapshot(const Case& the_case, Simulation& simulation,
     state.surface = simulation.surface();
     state.grown = simulation.films();
     state.displacement = simulation.displacement_errors();
-    if (solved)
-        fill_state(state, the_case, *solved);
-    else
-        state.material = simulation.materials();
+    fill_state(state, the_case, simulation.arrivals());
     return state;
 }
 
-HistoryRow history_row(const Case& the_case, const Simulation& simulation,
-                       const std::string& step, double step_start_s,
-                       const fluxes::SurfaceStep& solved) {
+HistoryRow history_row(const Case& the_case, Simulation& simulation, const std::string& step,
+                       double step_start_s) {
+    const fluxes::SurfaceStep& solved = simulation.arrivals();
     HistoryRow row;
     row.time_s = simulation.time_s();
     row.step = step;
@@ -130,52 +126,41 @@ std::vector<std::string> charging_warnings(const Case& the_case) {
     return warnings;
 }
 
-RunOutcome run_case(const Case& the_case, RunObserver& observer, const std::atomic<bool>& stop) {
+RunResult run_case(const Case& the_case, RunObserver& observer, const std::atomic<bool>& stop) {
     using Clock = std::chrono::steady_clock;
     const auto started = Clock::now();
-    RunOutcome outcome;
+    RunResult result;
     Simulation simulation(the_case);
     const double expected = expected_duration(the_case);
     const double interval =
         the_case.frame_interval_s > 0 ? the_case.frame_interval_s : expected / 10;
-    const auto frame = [&](const fluxes::SurfaceStep* solved) {
-        outcome.frames.push_back(snapshot(the_case, simulation, solved));
-        observer.framed(outcome.frames.back());
-    };
-    frame(&simulation.arrivals());
+    observer.framed(snapshot(the_case, simulation));
     double next_frame = interval;
     while (!simulation.finished() && !stop) {
         const std::size_t index = simulation.step_index();
-        const std::string name = the_case.steps[index].name;
         const double start_s =
             simulation.outcomes().empty() ? 0.0 : simulation.outcomes().back().end_s;
         simulation.step(next_frame);
-        if (simulation.finished()) break;
-        outcome.result.history.push_back(
-            history_row(the_case, simulation, name, start_s, simulation.arrivals()));
-        const double share = std::min(
-            1.0, (index + (simulation.step_index() > index ? 1.0 : simulation.step_progress())) /
-                     the_case.steps.size());
-        observer.progressed(simulation, outcome.result.history.back(), share);
+        result.history.push_back(
+            history_row(the_case, simulation, the_case.steps[index].name, start_s));
+        const double of_step = simulation.step_index() > index ? 1.0 : simulation.step_progress();
+        observer.progressed(simulation, result.history.back(),
+                            (index + of_step) / the_case.steps.size());
         if (simulation.time_s() >= next_frame * (1 - 1e-12)) {
-            frame(&simulation.arrivals());
+            if (!simulation.finished()) observer.framed(snapshot(the_case, simulation));
             next_frame += interval;
         }
     }
-    outcome.interrupted = !simulation.finished();
-    frame(&simulation.arrivals());
-    outcome.result.history.push_back(history_row(the_case, simulation, outcome.frames.back().step,
-                                                 0.0, simulation.arrivals()));
-    outcome.result.last = outcome.frames.back();
-    RunRecord& record = outcome.result.record;
-    record.status = outcome.interrupted      ? "interrupted"
+    result.last = snapshot(the_case, simulation);
+    RunRecord& record = result.record;
+    record.status = !simulation.finished()     ? "interrupted"
                     : simulation.all_reached() ? "done"
                                                : "not cleared";
     note_health(the_case, simulation, record);
     record.wall_seconds = std::chrono::duration<double>(Clock::now() - started).count();
     const auto front = std::make_shared<geometry::Front>(simulation.front());
-    outcome.result.write_level_set = [front](const std::string& path) { front->write_vdb(path); };
-    return outcome;
+    result.write_level_set = [front](const std::string& path) { front->write_vdb(path); };
+    return result;
 }
 
 } // namespace rille::engine

@@ -2,11 +2,11 @@
 #pragma once
 
 #include "engine/case.hpp"
-#include "engine/output_folder.hpp"
 #include "engine/run_result.hpp"
 #include "engine/simulation.hpp"
 
 #include <atomic>
+#include <string>
 #include <vector>
 
 namespace rille::engine {
@@ -21,16 +21,10 @@ class RunObserver {
     virtual void framed(const SurfaceState&) = 0;
 };
 
-/// What a finished or interrupted run leaves.
-struct RunOutcome {
-    RunResult result;
-    std::vector<SurfaceState> frames; ///< t = 0 first, the last state last
-    bool interrupted = false;
-};
-
 /// Runs a case from its first step to its last, or until `stop` is set (seen after each refresh).
-/// Throws NumericsError; what was computed until then is in the frames already observed.
-RunOutcome run_case(const Case&, RunObserver&, const std::atomic<bool>& stop);
+/// record.status tells which. Throws NumericsError; what was computed until then is in the frames
+/// already observed.
+RunResult run_case(const Case&, RunObserver&, const std::atomic<bool>& stop);
 
 /// Estimated length [s] of the process: times as stated, and for steps that end at a film the
 /// open field's time, at most the step's limit.

@@ -23,21 +23,22 @@ struct PhaseTime {
     double seconds = 0;
 };
 
-/// Where a result comes from and how the computation went. Everything that is not known stays empty.
+/// Where a result comes from and how the computation went. Everything that is not known stays
+/// empty.
 struct RunRecord {
     std::string status = "done"; ///< "done", "not cleared", "interrupted", "failed"
     std::string command;
     int threads = 0;
-    std::string started;         ///< UTC, 2026-01-31T12:00:00Z
+    std::string started; ///< UTC, 2026-01-31T12:00:00Z
     double wall_seconds = 0;
     std::vector<PhaseTime> timings;
     std::vector<StepOutcome> steps;
     std::vector<std::string> warnings; ///< raised during the run; the case's own are added
     double simulated_s = 0;
-    int refreshes = 0;                 ///< of the arrivals
+    int refreshes = 0; ///< of the arrivals
     std::uint64_t rays = 0;
     std::uint64_t lost_rays = 0;
-    double redistance_shift = 0;       ///< [cells] largest accumulated
+    double redistance_shift = 0; ///< [cells] largest accumulated
     std::uint64_t peak_memory_bytes = 0;
 };
 
@@ -49,8 +50,6 @@ nlohmann::json record_json(const Case&, const RunRecord&, const std::vector<std:
 std::vector<std::string> cpu_features();
 /// SHA-256 of the text, 64 hexadecimal digits.
 std::string content_hash(const std::string& text);
-/// The present time, UTC, as RunRecord::started wants it.
-std::string utc_now();
 std::uint64_t peak_memory_bytes(); ///< of this process so far; 0 if unknown
 /// "measured", "published", "from memory", "illustrative" with their counts:
 /// "parameters: 0 measured, 12 published, 5 from memory, 3 illustrative".

@@ -63,7 +63,13 @@ class Simulation {
     double step_progress() const;
 
   private:
-    struct Trial; // the state after a tried advance
+    /// The state after a tried advance.
+    struct Trial {
+        geometry::Front front;
+        geometry::Surface surface;
+        geometry::GrownFilms films; ///< on the elements of the surface before the advance
+        geometry::AdvanceReport report;
+    };
     const RecipeStep& recipe() const { return case_.steps[step_index_]; }
     fluxes::MaterialsInReach materials_in_reach(const geometry::Surface&,
                                                 const geometry::GrownFilms&) const;

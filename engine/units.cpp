@@ -90,6 +90,10 @@ const DimensionInfo& info(Dimension dimension) {
            {"nm-3", 1},
            {"m-3", 1e-27},
            {"1/cm3", 1e-21}}}},
+        {Dimension::site_density,
+         {"a density of sites",
+          "6.78e14 /cm2",
+          {{"/cm2", 1e-14}, {"/nm2", 1}, {"/m2", 1e-18}, {"cm-2", 1e-14}, {"nm-2", 1}}}},
         {Dimension::mass_density,
          {"a mass density", "2.33 g/cm3", {{"g/cm3", 1}, {"kg/m3", 1e-3}}}},
         {Dimension::mass, {"a mass", "35.45 amu", {{"amu", 1}, {"g/mol", 1}}}},
@@ -274,10 +278,6 @@ QuantityText parse_quantity(const std::string& text, Dimension dimension) {
         if (number.unit == unit.text)
             return {unit.factor * (number.value + unit.offset), ""};
     return {0, fmt::format("{}; {}", foreign_unit(trimmed(text), number.unit, dimension), form)};
-}
-
-std::string shortest(double value) {
-    return fmt::format("{}", value);
 }
 
 std::string format_quantity(double inside, Dimension dimension) {

@@ -20,6 +20,7 @@ enum class Dimension {
     flux,             ///< nm^-2 s^-1, neutral particles
     ion_flux,         ///< nm^-2 s^-1, singly charged ions; also as a current density
     number_density,   ///< nm^-3
+    site_density,     ///< nm^-2
     mass_density,     ///< g/cm3
     mass,             ///< amu
     share,            ///< 1 (100 % = 1)
@@ -57,8 +58,6 @@ struct QuantityText {
 };
 QuantityText parse_quantity(const std::string& text, Dimension);
 
-/// The shortest decimal text that reads back as the same double.
-std::string shortest(double value);
 /// Value in inside units with the dimension's first unit: "60 nm". Reads back within round-off.
 std::string format_quantity(double inside, Dimension);
 

@@ -36,7 +36,8 @@ bool in_range(const YamlNode& node, double value, const Range& range,
     return false;
 }
 
-/// What a YAML 1.1 reader would make of plain text; empty if it stays text.
+} // namespace
+
 std::string other_reading(const std::string& text) {
     const std::string low = lower_case(text);
     for (const char* word : {"yes", "on", "y", "true"})
@@ -56,8 +57,6 @@ std::string other_reading(const std::string& text) {
         return "an octal number";
     return "";
 }
-
-} // namespace
 
 bool Range::contains(double value) const {
     return (low_open ? value > low : value >= low) && (high_open ? value < high : value <= high);

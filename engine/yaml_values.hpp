@@ -30,6 +30,10 @@ inline Range zero_or_more() {
     return {0, infinite, false, false};
 }
 
+/// What a YAML 1.1 reader would make of plain text ("false" of NO, "a number to base 60" of 1:30);
+/// empty if it stays text.
+std::string other_reading(const std::string& text);
+
 // Each reads one value, or adds a problem that names what was found and what is allowed, and
 // returns nothing. An empty value (`key:`) is always a problem.
 std::optional<double> read_quantity(const YamlNode&, Dimension, const Range&, Problems&);

@@ -15,9 +15,15 @@ constexpr int batches = 8;
 
 /// The exchange operator of neutrals in free-molecular flow with diffuse re-emission: traced once,
 /// solved for many species. Arrivals follow from arrival = d + A (1 - sticking) arrival, fluxes
-/// relative to the open one. Row sum of A plus d is 1 by construction.
+/// relative to the open one. Row sum of A plus d is 1 by construction, so zero sticking gives flux
+/// 1 everywhere. d: extruded exact from the visible sky, full from rays by the cosine law combined
+/// with rays aimed at the opening (multiple importance sampling, unbiased). The rest of a row is
+/// shared equally by the elements that the cosine-law rays of the element hit.
+///
+/// The batches are independent of each other: each has its own scramble of launch points and
+/// directions. Elements without any path to the open (closed voids) receive nothing.
 class Exchange {
-  public:
+public:
     struct Options {
         int rays_per_element = 64; ///< a multiple of `batches`
         std::uint64_t seed = 1;
@@ -29,18 +35,28 @@ class Exchange {
     std::size_t size() const { return direct_.size(); }
     /// Impinging flux per element relative to the open flux, for sticking per element in [0, 1].
     /// batch = -1 uses all rays, 0..7 one batch only. `guess` may be empty (warm start otherwise).
+    /// Relative residual 1e-10; throws NumericsError if that is not reached. Adds the number of
+    /// Krylov iterations to *iterations if given.
     std::vector<double> solve(const std::vector<double>& sticking, int batch,
-                              const std::vector<double>& guess) const;
-    const std::vector<double>& direct() const { return direct_; }
-    int last_iterations() const { return last_iterations_; }
+                              const std::vector<double>& guess, int* iterations = nullptr) const;
+    /// arrival = A emitted, both of size(); emitted and arrival must not overlap.
+    void apply(int batch, const double* emitted, double* arrival) const;
+    /// The direct part d of all rays (batch = -1) or of one batch.
+    const std::vector<double>& direct(int batch = -1) const {
+        return batch < 0 || batch_direct_.empty() ? direct_ : batch_direct_[batch];
+    }
 
-  private:
+private:
+    struct Tracing;
+    void find_open();
+    double row(int element, int batch, const double* emitted) const;
+
+    int per_batch_ = 0;
     std::vector<double> direct_;
-    mutable int last_iterations_ = 0;
-    struct Row;
-    int rays_ = 0;
-    std::vector<std::int32_t> target_;       ///< element hit by each ray, -1 = open
-    std::vector<std::vector<double>> batch_direct_;
+    std::vector<std::vector<double>> batch_direct_; ///< empty where every batch has the same d
+    std::vector<std::int32_t> target_; ///< [element][batch][ray]: elements hit, packed to the front
+    std::vector<std::int16_t> hits_;   ///< [element][batch]: how many of them
+    std::vector<std::uint8_t> open_;   ///< whether any path leads to the open
 };
 
 } // namespace rille::fluxes

@@ -232,7 +232,8 @@ std::vector<int> deposited_materials(const Mechanism& mechanism) {
     for (const SurfaceChemistry& surface : mechanism.surfaces)
         for (const SurfaceProcess& process : surface.processes)
             if (const auto* deposition = std::get_if<Deposition>(&process))
-                if (deposition->film_material >= 0) found.push_back(deposition->film_material);
+                if (deposition->film_material >= 0)
+                    found.push_back(deposition->film_material);
     std::sort(found.begin(), found.end());
     found.erase(std::unique(found.begin(), found.end()), found.end());
     return found;

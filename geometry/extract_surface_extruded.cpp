@@ -27,13 +27,14 @@ std::vector<Piece> cut_at_sides(const ContourChain& chain, const Domain& domain)
         return p;
     };
     const int size = static_cast<int>(chain.points.size());
+    const int periods = static_cast<int>(std::lround(chain.shift / width));
     std::vector<Piece> pieces;
     for (int n = 0; n < size; ++n) {
         const Vec3 a = chain.points[n].p;
-        const Vec3 b = n + 1 < size ? chain.points[n + 1].p
-                                    : chain.points[0].p + Vec3(chain.shift, 0, 0);
+        const Vec3 ahead = chain.points[(n + 1) % size].p;
+        const Vec3 b = n + 1 < size ? ahead : ahead + Vec3(chain.shift, 0, 0);
         int here = period_of(a.x);
-        const int there = period_of(b.x);
+        const int there = period_of(ahead.x) + (n + 1 < size ? 0 : periods);
         Vec3 from = inside(a, here);
         while (here != there) {
             const bool right = there > here;
@@ -44,10 +45,9 @@ std::vector<Piece> cut_at_sides(const ContourChain& chain, const Domain& domain)
             from = Vec3(right ? x_min : x_max, 0, z);
             here += right ? 1 : -1;
         }
-        const Vec3 end = inside(b, here);
+        const Vec3 end = inside(ahead, period_of(ahead.x));
         if ((end - from).length() > 0) pieces.push_back({from, end, here, false});
     }
-    const int periods = static_cast<int>(std::lround(chain.shift / width));
     for (std::size_t n = 0; n < pieces.size(); ++n)
         pieces[n].enters = n > 0 ? pieces[n].period == pieces[n - 1].period + 1
                                  : pieces[0].period + periods == pieces.back().period + 1;

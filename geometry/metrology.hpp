@@ -2,62 +2,79 @@
 #pragma once
 
 #include "geometry/domain.hpp"
-#include "geometry/stack.hpp"
 #include "geometry/surface.hpp"
 
 #include <optional>
-#include <string>
+#include <utility>
 #include <vector>
 
 namespace rille::geometry {
 
 /// A length or angle read off the surface. `elements` are the surface elements that decide it, with
 /// the weight d(value)/d(outward displacement of that element) each: the caller turns the carried
-/// displacement errors of those elements into a sampling error.
+/// displacement errors of those elements into a sampling error. At fixed height an element's
+/// crossing moves by displacement / n.x, on an upright line by displacement / n.z, n being its
+/// normal.
 struct Measured {
     double value = 0;
     std::vector<std::pair<int, double>> elements;
 };
 
-/// Which feature to measure: an opening of the mask, or the line between two openings.
+/// Which opening to measure. The axis stands at the centre; images beyond the sides of the period
+/// count, so a feature may lie across a side.
 struct FeatureSite {
-    double centre_x = 0, centre_y = 0;   ///< [nm]
-    double width_x = 0, width_y = 0;     ///< at the mask bottom before the etch [nm]
-    bool round = false;                  ///< a via: y is measured too
+    double centre_x = 0, centre_y = 0; ///< [nm]
+    double width_x = 0, width_y = 0;   ///< at the mask bottom before the etch [nm]
+    bool round = false;                ///< a via: y is measured too
 };
 
-/// Definitions: see the README table. Every function returns nothing where the quantity does not
-/// exist (no wall at that height, feature closed). Heights z in nm; the section plane is y = centre_y,
-/// and for CD in y, x = centre_x.
+/// Every function returns nothing where the quantity does not exist (no wall at that height,
+/// feature closed). Heights z in nm. Everything is read off the section plane y = centre_y of the
+/// sub-cell surface (CD in y: x = centre_x). A wall is where that section crosses the height; the
+/// gap between walls that holds the axis counts or, if the axis is in the solid there, the gap that
+/// covers most of the opening as drawn. At a ledge the wall above it counts.
+
+/// CD: full width of the gap along x at height z.
 std::optional<Measured> cd_at(const Domain&, const Surface&, const FeatureSite&, double z);
+/// CD y: the same along y (full only).
 std::optional<Measured> cd_y_at(const Domain&, const Surface&, const FeatureSite&, double z);
-/// 2 sqrt(area / pi) of the section at z (full only).
+/// Area-equivalent CD: 2 sqrt(area / pi) of the level section round the axis at z, less pillars
+/// standing in it (full only).
 std::optional<Measured> cd_area_at(const Domain&, const Surface&, const FeatureSite&, double z);
-/// Widest CD of the film walls between z_low and z_high, and the height where it is.
+
+/// Bow CD: widest CD between z_low and z_high, and the height where it is (the highest of several).
 struct Bow {
     Measured cd;
     double z = 0;
 };
 std::optional<Bow> widest_cd(const Domain&, const Surface&, const FeatureSite&, double z_low,
                              double z_high);
-/// Sidewall angle [deg] of the left and the right wall between two heights (90 vertical, above 90
-/// re-entrant): least-squares line through the wall points.
+
+/// Sidewall angle [deg] of the left and the right wall between two heights: angle inside the solid
+/// of the least-squares line x(z) through the wall (90 vertical, below 90 wider at the top, above
+/// 90 re-entrant). Nothing unless there are two walls at every height between.
 struct SidewallAngles {
     Measured left, right;
 };
 std::optional<SidewallAngles> sidewall_angles(const Domain&, const Surface&, const FeatureSite&,
                                               double z_low, double z_high);
-/// Lowest lit height of the floor on the feature's axis, at its foot (within 10 % of the bottom CD
-/// of either wall), and the deepest point: z [nm].
+
+/// Floor heights z [nm]. centre: on the axis, seen from above. Edges: lowest floor within 10 % of
+/// the bottom CD of the left or right wall; bottom CD: at 90 % of the centre's depth below z = 0,
+/// but at least half a cell above the floor. deepest: lowest floor between the walls (microtrench
+/// depth = centre - deepest). Nothing if the floor is cut off from the source.
 struct Floor {
     Measured centre, left_edge, right_edge, deepest;
 };
 std::optional<Floor> floor_of(const Domain&, const Surface&, const FeatureSite&);
-/// Height of the highest point of the solid within `x_low..x_high` (mask left, top loss).
+
+/// Top: highest point of the solid for x_low <= x <= x_high (mask left, top loss).
 std::optional<Measured> top_between(const Domain&, const Surface&, double x_low, double x_high,
                                     double y);
-/// Angle [deg from horizontal] of the facet at the mask's top edge beside the feature: area-weighted
-/// mean over wall elements between 20 and 80 deg within the mask; nothing without such a facet.
+
+/// Mask facet: length-weighted mean angle [deg from horizontal] of the pieces between 20 and 80 deg
+/// above the mask bottom that face the opening, up to the next opening. Nothing without such
+/// pieces.
 std::optional<Measured> mask_facet_angle(const Domain&, const Surface&, const FeatureSite&,
                                          double z_mask_bottom);
 

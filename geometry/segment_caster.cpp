@@ -65,25 +65,17 @@ SegmentCaster::SegmentCaster(const Domain& domain, const Surface& surface, doubl
         const Vec3 &a = surface.vertices[c[0]], &b = surface.vertices[c[1]];
         ends_.push_back({a.x, a.z, b.x, b.z});
     }
-    const int count = static_cast<int>(surface.size());
-    convex_neighbour_.assign(surface.size(), {-1, -1});
-    for (int e = 0; e < count; ++e) {
-        const int after = surface.next[e];
-        if (after < 0 || !convex_joint(e, after))
-            continue;
-        convex_neighbour_[e][1] = after;
-        convex_neighbour_[after][0] = e;
-    }
+    joined_.assign(surface.size(), {-1, -1});
+    for (int e = 0; e < static_cast<int>(surface.size()); ++e)
+        if (const int after = surface.next[e]; after >= 0) {
+            joined_[e][1] = after;
+            joined_[after][0] = e;
+        }
+    for (int e = 0; e < static_cast<int>(surface.size()); ++e)
+        concave_.push_back({concave_at(e, 0), concave_at(e, 1)});
     choose_grid(surface);
     fill_cells(surface);
     find_rectangles();
-}
-
-/// True where the solid does not rise in front of either segment: a ray that leaves one of them
-/// cannot meet the other.
-bool SegmentCaster::convex_joint(int first, int second) const {
-    const auto &f = ends_[first], &s = ends_[second];
-    return (f[2] - f[0]) * (s[3] - s[1]) - (f[3] - f[1]) * (s[2] - s[0]) <= 0;
 }
 
 void SegmentCaster::choose_grid(const Surface& surface) {
@@ -100,10 +92,11 @@ void SegmentCaster::choose_grid(const Surface& surface) {
     const double size = std::max(1.5 * length / n, std::sqrt(area / (4 * n)));
     nx_ = std::max(1, static_cast<int>(std::lround(width_ / size)));
     cell_x_ = width_ / nx_;
-    cell_z_ = size;
+    // The grid ends exactly at the top: a ray that rises above it is free.
     z_min_ = low - 0.25 * size;
-    nz_ = std::max(1, static_cast<int>(std::ceil((high + 0.25 * size - z_min_) / size)));
-    z_top_ = z_min_ + nz_ * cell_z_;
+    z_top_ = high;
+    nz_ = std::max(1, static_cast<int>(std::ceil((high - z_min_) / size)));
+    cell_z_ = (high - z_min_) / nz_;
     per_cell_x_ = 1.0 / cell_x_;
     per_cell_z_ = 1.0 / cell_z_;
 }
@@ -278,9 +271,7 @@ void SegmentCaster::test_cell(const Ray& ray, int cell, Best& best) const {
         const double t = ta + share * (tb - ta);
         if (t < -slack_ || t >= best.t)
             continue;
-        if (t < slack_ && ray.from >= 0 &&
-            (s->element == convex_neighbour_[ray.from][0] ||
-             s->element == convex_neighbour_[ray.from][1]))
+        if (t < slack_ && ray.from >= 0 && behind_at_start(ray.from, s->element))
             continue;
         best = {t, share, s->element};
     }
@@ -300,6 +291,44 @@ Hit SegmentCaster::finish_hit(const Ray& ray, const Best& best) const {
     if (ray.flipped)
         hit.direction.x = -hit.direction.x;
     return hit;
+}
+
+/// Normal (not unit) of the segment at one end of `element`; at a mirror side its own image.
+std::array<double, 2> SegmentCaster::normal_beyond(int element, int end) const {
+    const int other = joined_[element][end];
+    const auto& s = ends_[other < 0 ? element : other];
+    return {other < 0 ? s[3] - s[1] : s[1] - s[3], s[2] - s[0]};
+}
+
+/// True where the segment beyond rises in front of `element`.
+bool SegmentCaster::concave_at(int element, int end) const {
+    const auto& own = ends_[element];
+    const std::array<double, 2> n = normal_beyond(element, end);
+    const double turn = (own[2] - own[0]) * -n[0] - (own[3] - own[1]) * n[1];
+    return end == 1 ? turn > 0 : turn < 0;
+}
+
+/// A ray that starts, to round-off, in a concave joint and points into the other segment ends
+/// there. Which of the two segments its line crosses is then a matter of the last bit.
+bool SegmentCaster::starts_in_joint(const Vec3& origin, const Vec3& direction, int from,
+                                    Hit& hit) const {
+    const auto& own = ends_[from];
+    for (int end = 0; end < 2; ++end) {
+        if (std::fabs(own[2 * end] - origin.x) + std::fabs(own[2 * end + 1] - origin.z) > slack_)
+            continue;
+        const std::array<double, 2> n = normal_beyond(from, end);
+        if (!concave_[from][end] || n[0] * direction.x + n[1] * direction.z >= 0)
+            continue;
+        const bool image = joined_[from][end] < 0;
+        hit.kind = Hit::Kind::surface;
+        hit.element = image ? from : joined_[from][end];
+        hit.point = origin;
+        hit.direction = direction;
+        if (image)
+            hit.direction.x = -direction.x;
+        return true;
+    }
+    return false;
 }
 
 Hit SegmentCaster::finish_open(Ray& ray) const {
@@ -324,6 +353,8 @@ Hit SegmentCaster::trace(const Vec3& origin, const Vec3& direction, int from_ele
     const double in_plane = std::hypot(direction.x, direction.z);
     if (!(in_plane > 1e-12))
         return lost; // along y: it meets nothing and never gets out
+    if (from_element >= 0 && starts_in_joint(origin, direction, from_element, lost))
+        return lost;
     Ray ray;
     ray.ox = origin.x;
     ray.oz = origin.z;

@@ -49,19 +49,26 @@ private:
     void test_cell(const Ray&, int cell, Best&) const;
     Hit finish_hit(const Ray&, const Best&) const;
     Hit finish_open(Ray&) const;
-    bool convex_joint(int first, int second) const;
+    std::array<double, 2> normal_beyond(int element, int end) const;
+    bool concave_at(int element, int end) const;
+    bool behind_at_start(int from, int element) const {
+        return (element == joined_[from][0] && !concave_[from][0]) ||
+               (element == joined_[from][1] && !concave_[from][1]);
+    }
+    bool starts_in_joint(const Vec3& origin, const Vec3& direction, int from, Hit&) const;
 
     Domain domain_;
     double z_open_ = 0;
     double width_ = 0, x_min_ = 0, z_min_ = 0, z_top_ = 0;
     double cell_x_ = 1, cell_z_ = 1, per_cell_x_ = 1, per_cell_z_ = 1;
     int nx_ = 1, nz_ = 1;
-    double slack_ = 0;                        ///< [nm] hits this far behind the origin still count
-    std::vector<std::array<double, 4>> ends_; ///< per element: ax, az, bx, bz
-    std::vector<std::array<int, 2>> convex_neighbour_; ///< per element; -1 if none
-    std::vector<int> first_;                           ///< per cell + 1: range in `segments_`
-    std::vector<Segment> segments_;                    ///< copies, cell after cell
-    std::vector<int> rectangle_of_;                    ///< per cell; -1 where there are segments
+    double slack_ = 0;                         ///< [nm] hits this far behind the origin still count
+    std::vector<std::array<double, 4>> ends_;  ///< per element: ax, az, bx, bz
+    std::vector<std::array<bool, 2>> concave_; ///< per element: at its start, at its end
+    std::vector<std::array<int, 2>> joined_;   ///< element before and after; -1 at a mirror side
+    std::vector<int> first_;                   ///< per cell + 1: range in `segments_`
+    std::vector<Segment> segments_;            ///< copies, cell after cell
+    std::vector<int> rectangle_of_;            ///< per cell; -1 where there are segments
     std::vector<Rectangle> rectangles_;
 };
 

@@ -58,7 +58,6 @@ TEST_CASE("what is written for output reads back") {
         CHECK(inside(text, dimension) == Approx(12.5).epsilon(1e-11));
     }
     CHECK(format_quantity(60, Dimension::length) == "60 nm");
-    CHECK(shortest(0.1) == "0.1");
 }
 
 TEST_CASE("quantities that are not clear are refused with a way out") {

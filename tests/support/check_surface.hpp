@@ -8,6 +8,9 @@
 #include <algorithm>
 #include <cmath>
 #include <functional>
+#include <map>
+#include <utility>
+#include <vector>
 
 namespace rille::tests {
 
@@ -60,6 +63,43 @@ inline double total_area(const Surface& s) {
     double sum = 0;
     for (double a : s.area) sum += a;
     return sum;
+}
+
+/// Edges of a full surface that are not shared by exactly two quads in opposite directions. Edges
+/// on mirror sides may be free; at periodic sides an edge continues in the image of its vertices.
+inline int loose_edges(const Surface& s, const Domain& d) {
+    const double wx = d.width_x(), wy = d.width_y(), fine = 1e-9 * d.spacing;
+    const bool mirror = d.sides == geometry::Sides::mirror;
+    // Vertices at the same place (up to periods) are one.
+    std::map<std::array<long long, 3>, int> place;
+    std::vector<int> name(s.vertices.size());
+    for (std::size_t v = 0; v < s.vertices.size(); ++v) {
+        Vec3 p = s.vertices[v];
+        if (!mirror) {
+            p.x -= wx * std::floor(p.x / wx + 0.5 - 1e-7);
+            p.y -= wy * std::floor(p.y / wy + 0.5 - 1e-7);
+        }
+        const std::array<long long, 3> key{std::llround(p.x / fine / 64), std::llround(p.y / fine / 64),
+                                           std::llround(p.z / fine / 64)};
+        name[v] = place.emplace(key, static_cast<int>(v)).first->second;
+    }
+    std::map<std::pair<int, int>, std::pair<int, int>> count; // forwards, backwards
+    for (const auto& c : s.corners)
+        for (int m = 0; m < 4; ++m) {
+            const int a = name[c[m]], b = name[c[(m + 1) % 4]];
+            if (a == b) continue;
+            (a < b ? count[{a, b}].first : count[{b, a}].second) += 1;
+        }
+    int loose = 0;
+    for (const auto& [edge, uses] : count) {
+        if (uses.first == 1 && uses.second == 1) continue;
+        const Vec3 a = s.vertices[edge.first], b = s.vertices[edge.second];
+        const bool on_x = std::fabs(std::fabs(a.x) - wx / 2) + std::fabs(std::fabs(b.x) - wx / 2) == 0;
+        const bool on_y = std::fabs(std::fabs(a.y) - wy / 2) + std::fabs(std::fabs(b.y) - wy / 2) == 0;
+        if (mirror && uses.first + uses.second == 1 && (on_x || on_y)) continue;
+        ++loose;
+    }
+    return loose;
 }
 
 } // namespace rille::tests

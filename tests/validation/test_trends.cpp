@@ -16,25 +16,25 @@ struct Silent : engine::RunObserver {
     void framed(const engine::SurfaceState&) override {}
 };
 
-engine::RunOutcome run(const engine::Case& c) {
+engine::RunResult run(const engine::Case& c) {
     Silent silent;
     const std::atomic<bool> stop{false};
     return engine::run_case(c, silent, stop);
 }
 
 /// Widest full width of the film below the mask, less the mask opening [nm].
-geometry::Measured widening(const engine::Case& c, const engine::RunOutcome& outcome) {
+geometry::Measured widening(const engine::Case& c, const engine::RunResult& outcome) {
     const auto site = engine::feature_sites(c)[0];
     const auto widest =
-        geometry::widest_cd(c.domain, outcome.result.last.surface, site, c.films[1].bottom, 0.0);
+        geometry::widest_cd(c.domain, outcome.last.surface, site, c.films[1].bottom, 0.0);
     REQUIRE(widest);
     geometry::Measured result = widest->cd;
     result.value -= site.width_x;
     return result;
 }
 
-double floor_depth(const engine::Case& c, const engine::RunOutcome& outcome, int opening) {
-    const auto floor = geometry::floor_of(c.domain, outcome.result.last.surface,
+double floor_depth(const engine::Case& c, const engine::RunResult& outcome, int opening) {
+    const auto floor = geometry::floor_of(c.domain, outcome.last.surface,
                                           engine::feature_sites(c)[opening]);
     REQUIRE(floor);
     return -floor->centre.value;
@@ -75,7 +75,7 @@ TEST_CASE("bow grows with the angular spread of the ions", "[validation][trends]
         else
             CHECK(width.value > before + std::max(0.1 * t.c.domain.spacing,
                                                   5 * engine::sampling_error(
-                                                          width, outcome.result.last.displacement)));
+                                                          width, outcome.last.displacement)));
         before = width.value;
     }
 }
@@ -110,7 +110,7 @@ TEST_CASE("more passivant gives more taper", "[validation][trends]") {
         const auto outcome = run(t.c);
         const double depth = floor_depth(t.c, outcome, 0);
         const auto angles =
-            geometry::sidewall_angles(t.c.domain, outcome.result.last.surface,
+            geometry::sidewall_angles(t.c.domain, outcome.last.surface,
                                       engine::feature_sites(t.c)[0], -0.8 * depth, -0.2 * depth);
         REQUIRE(angles);
         CAPTURE(passivant, depth, angles->left.value, angles->right.value);
@@ -157,7 +157,8 @@ TEST_CASE("the narrower of two trenches lags when neutrals limit", "[validation]
 
 // Oracle: a tapered mask that erodes at vertical rate m opens its bottom by m t / tan(angle) a side.
 // Source: geometry, derived here.
-// Tolerance: 15 % of the opening and monotone.
+// Tolerance: 15 % of the opening or half a cell a side (the scheme's smearing of a contact), and
+// monotone.
 TEST_CASE("faster mask erosion opens the CD", "[validation][trends]") {
     double before = 0;
     for (const double yield : {0.0, 0.2, 0.5}) {
@@ -169,14 +170,14 @@ TEST_CASE("faster mask erosion opens the CD", "[validation][trends]") {
         if (yield > 0) etch_by_ions(t, 1, yield);
         t.add_step("main", 60);
         const auto outcome = run(t.c);
-        const auto cd = geometry::cd_at(t.c.domain, outcome.result.last.surface,
+        const auto cd = geometry::cd_at(t.c.domain, outcome.last.surface,
                                         engine::feature_sites(t.c)[0], -1.0);
         REQUIRE(cd);
         const double opened = cd->value - 50;
         const double expected =
             2 * (yield * 60 / 50 * 60) / std::tan(80 * 3.14159265358979 / 180);
         CAPTURE(yield, opened, expected);
-        CHECK(opened == Approx(expected).epsilon(0.15).margin(0.4));
+        CHECK(opened == Approx(expected).epsilon(0.15).margin(2 * 0.5));
         CHECK(opened >= before - 0.05);
         before = opened;
     }

@@ -1,0 +1,42 @@
+// SPDX-License-Identifier: Apache-2.0
+#pragma once
+
+// Parts of the case loader, used by case_file.cpp only: each turns checked entries into a part of
+// the case and adds what is wrong between values. Parts that were reported already are skipped.
+
+#include "engine/case.hpp"
+#include "engine/entry.hpp"
+
+#include <string>
+#include <vector>
+
+namespace rille::engine {
+
+/// Applies "key.path=value" to the document.
+void apply_overrides(YamlNode& root, const std::vector<std::string>& overrides, Problems&);
+/// Replaces `from: NAME` in plasmas by a copy of that plasma, with the keys given on top.
+void copy_plasmas(YamlNode& root, Problems&);
+/// Makes the paths of files absolute: they are relative to the folder of the case.
+void absolute_files(YamlNode& root, const std::string& folder);
+
+/// Index of a material in the run's list, added if it is new; 0 for a name already reported.
+int material_index(Case&, const Entry& name);
+
+void build_domain(const Entry& root, Case&, Problems&);
+void build_stack(const Entry& root, Case&, Problems&);
+void build_mask(const Entry& root, Case&, Problems&);
+void build_plasmas(const Entry& root, Case&, Problems&);
+void build_recipe(const Entry& root, Case&, Problems&);
+/// Heights of the CD; where the case names none, three in the first film, which are also written
+/// into `root`.
+void build_measure(Entry& root, Case&, Problems&);
+void build_targets(const Entry& root, Case&, Problems&);
+/// The mechanism for the materials, ions and neutrals of the case; masses of the ions.
+void build_chemistry(const Entry& root, const std::string& folder, Case&, Problems&);
+
+/// Film of that name with a bounded thickness or not; -1 if there is none.
+int film_index(const Case&, const std::string& name);
+std::vector<std::string> film_names(const Case&);
+std::vector<std::string> opening_names(const Case&);
+
+} // namespace rille::engine

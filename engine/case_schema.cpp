@@ -1,0 +1,282 @@
+// SPDX-License-Identifier: Apache-2.0
+#include "engine/case_schema.hpp"
+
+namespace rille::engine {
+
+namespace {
+
+using D = Dimension;
+
+const char* const place_pattern =
+    "^([0-9.eE+-]+ *(nm|um|angstrom|mm) +(above|below) +.+|middle of +.+|.+ +(top|bottom))$";
+
+Rule stack_rule() {
+    const auto film = [](const std::string& key) {
+        return map_rule(
+            key,
+            {text_rule("name", "name of the film, used in places and paths").required(),
+             text_rule("material", "what it is made of, as the chemistry names it").required(),
+             sentence_rule("thickness", "a length, or semi-infinite for the last",
+                           "^(semi-infinite|[0-9.eE+-]+ *(nm|um|angstrom|mm))$",
+                           "thickness of the film; the last is semi-infinite")
+                 .required()},
+            "one film");
+    };
+    const Rule group = map_rule(
+        "*",
+        {text_rule("name", "name of the group; its films are called NAME 1 FILM, NAME 2 FILM ...")
+             .by_default("pair"),
+         integer_rule("repeat", {1, 10000}, "how many times the films follow each other")
+             .required(),
+         list_rule("films", film(""), "the films of one repeat, top to bottom").required()},
+        "films that repeat");
+    return list_rule("stack", alternatives_rule("", "repeat", {film(""), group}, "film or group"),
+                     "films from top to bottom, starting below the mask")
+        .required();
+}
+
+Rule opening_rule() {
+    const auto with = [](const std::string& shape, std::vector<Rule> own,
+                         const std::string& meaning) {
+        std::vector<Rule> members = {
+            text_rule("name", "name of the opening, used in places and paths").required(),
+            word_rule("shape", {shape}, "shape of the opening").required()};
+        for (Rule& rule : own)
+            members.push_back(rule);
+        members.push_back(word_rule("cd_at", {"mask bottom", "mask top"},
+                                    "height at which cd is given")
+                              .by_default("mask bottom"));
+        members.push_back(quantities_rule("centre", D::length, {},
+                                          "centre of the opening (of the array) from the middle "
+                                          "of the period: x, or [x, y]")
+                              .by_default("0 nm"));
+        return map_rule(shape, members, meaning);
+    };
+    const Rule cd = quantity_rule("cd", D::length, above_zero(), "full width").required();
+    const Rule space =
+        quantity_rule("space", D::length, above_zero(), "mask between two openings").required();
+    return alternatives_rule(
+        "", "shape",
+        {with("trench", {cd}, "a trench along y"),
+         with("lines",
+              {cd, space, integer_rule("count", {1, 1000}, "number of openings").required()},
+              "an array of trenches with lines of mask between them"),
+         with("round", {cd}, "a round hole"),
+         with("elliptic",
+              {quantities_rule("cd", D::length, above_zero(), "full widths along x and y: [x, y]")
+                   .required()
+                   .items(2, 2)},
+              "an elliptic hole")},
+        "one opening");
+}
+
+Rule mask_rule() {
+    return map_rule(
+        "mask",
+        {text_rule("material", "what the mask is made of").required(),
+         quantity_rule("thickness", D::length, above_zero(), "thickness of the mask").required(),
+         quantity_rule("sidewall_angle", D::angle, {0, 180, true, true},
+                       "90 deg vertical, below opens upwards, above is re-entrant")
+             .by_default("90 deg"),
+         quantity_rule("corner_radius", D::length, zero_or_more(), "rounding of the top edge")
+             .by_default("0 nm"),
+         list_rule("openings", opening_rule(), "what is open in the mask").required(),
+         later_rule("layout", "mask layouts are not read; write the openings of one period"),
+         later_rule("contour", "drawn mask profiles are not read; give thickness, sidewall_angle "
+                               "and corner_radius")},
+        "the mask as it stands before the etch");
+}
+
+Rule ion_energies_rule() {
+    const auto table = [](const std::string& key) {
+        return map_rule(
+            key,
+            {text_rule("file", "CSV table, relative to the case file").required(),
+             word_rule("referenced_to", {"wafer"}, "surface to which the energies refer")
+                 .by_default("wafer"),
+             quantity_rule("transverse_temperature", D::energy, zero_or_more(),
+                           "spread across the field, for tables of energy only; default: "
+                           "ion_transverse_temperature")},
+            "one table");
+    };
+    const Rule each =
+        dictionary_rule("", table("").required(), "one table for each ion, by its name");
+    return alternatives_rule("ion_energies", "file", {each, table("*")},
+                             "measured or computed energy (and angle) distribution at the wafer; "
+                             "one for all ions, or one for each by name");
+}
+
+Rule rf_bias_rule() {
+    const char* sheath = "the sheath model that turns it into ion energies comes later; give "
+                         "mean_sheath, or ion_energies";
+    return map_rule("rf_bias",
+                    {quantity_rule("mean_sheath", D::voltage, zero_or_more(),
+                                   "mean voltage across the sheath above the wafer")
+                         .required(),
+                     later_rule("frequency", sheath), later_rule("amplitude", sheath),
+                     later_rule("peak_to_peak", sheath), later_rule("self_bias", sheath),
+                     later_rule("power", sheath), later_rule("waveform", sheath),
+                     later_rule("pulse", sheath), later_rule("harmonics", sheath)},
+                    "what accelerates the ions");
+}
+
+Rule plasma_rule() {
+    const char* unused = " (kept with the result, not used by the model)";
+    Rule neutral =
+        map_rule("",
+                 {quantity_rule("flux", D::flux, zero_or_more(), "flux at the open wafer surface")
+                      .required(),
+                  quantity_rule("temperature", D::temperature, above_zero(),
+                                "temperature of this neutral in the gas")
+                      .by_default("300 K"),
+                  later_rule("pressure", "partial pressures are not turned into fluxes; give flux")},
+                 "one neutral");
+    Rule neutrals = dictionary_rule("neutrals", neutral, "neutrals that reach the wafer, by name");
+    neutrals.members.push_back(
+        later_rule("from", "fluxes cannot be found from monitor rates; give each flux"));
+    neutrals.members.push_back(
+        later_rule("unknown", "fluxes cannot be found from monitor rates; give each flux"));
+    const Rule ions = dictionary_rule(
+                    "ions", quantity_rule("", D::share, {0, 1}, "share of the ion flux").required(),
+                    "ions by name with their shares, 100 % in all");
+    return map_rule(
+        "",
+        {text_rule("from", "name of a plasma to copy; keys given here replace the copied ones"),
+         quantity_rule("pressure", D::pressure, above_zero(), std::string("gas pressure") + unused),
+         dictionary_rule("flows",
+                         quantity_rule("", D::gas_flow, zero_or_more(), "flow of one gas").required(),
+                         std::string("gas flows") + unused),
+         quantity_rule("source_power", D::power, zero_or_more(), std::string("source power") + unused),
+         quantity_rule("source_frequency", D::frequency, above_zero(),
+                       std::string("source frequency") + unused),
+         quantity_rule("gas_temperature", D::temperature, above_zero(),
+                       std::string("gas temperature") + unused),
+         quantity_rule("electron_temperature", D::energy, zero_or_more(),
+                       "of the electrons; half of it adds to the energy of the ions")
+             .by_default("3 eV"),
+         quantity_rule("ion_flux", D::ion_flux, zero_or_more(), "all ions together at the wafer")
+             .required(),
+         later_rule("electron_density", "the ion flux is not found from the density; give ion_flux"),
+         ions,
+         quantity_rule("ion_transverse_temperature", D::energy, zero_or_more(),
+                       "of the ions across the field at the sheath edge: sets their spread in angle")
+             .by_default("0.1 eV"),
+         ion_energies_rule(), neutrals.by_default("{}"), rf_bias_rule(),
+         later_rule("collisions", "collisions in the sheath are not modelled; use ion_energies"),
+         later_rule("pulse", "pulsed plasmas are not modelled; use the mean, or several steps")},
+        "one state of the plasma");
+}
+
+Rule recipe_rule() {
+    const Rule until = map_rule(
+        "until",
+        {text_rule("reaches", "film; ends at first touch at the place"),
+         text_rule("cleared", "film; ends when it is fully exposed over the opening"),
+         sentence_rule("at", "NAME centre or open field", "^(.+ +centre|open field)$",
+                       "an opening's centre, or the open field: the flat-film rate").required()},
+        "ends when a film is met");
+    Rule step = map_rule(
+        "",
+        {text_rule("name", "name of the step").required(),
+         text_rule("plasma", "name of the plasma that burns").required(),
+         sentence_rule("time", "a time, or N % of STEP",
+                       "^([0-9.eE+-]+ *(s|min|ms|us|h)|[0-9.eE+-]+ *% +of +.+)$",
+                       "how long; N % of STEP is overetch by the time that step took"),
+         until,
+         quantity_rule("no_longer_than", D::time, above_zero(), "ends the step in any case"),
+         truth_rule("must_end", "true: reaching no_longer_than fails the run").by_default("false"),
+         later_rule("cycle", "cycles are not run; write the steps one by one"),
+         later_rule("repeat", "cycles are not run; write the steps one by one")},
+        "one step; give time, or until with no_longer_than");
+    return map_rule("recipe",
+                    {quantity_rule("wafer_temperature", D::temperature, above_zero(),
+                                   "temperature of the wafer surface").required(),
+                     list_rule("steps", step, "steps in order").required()},
+                    "what is done");
+}
+
+std::vector<Rule> later_rules() {
+    const char* study = "studies over several runs come later; run one case, with --set for values";
+    const char* measured = "comparing with measured profiles comes later; leave it out";
+    std::vector<Rule> rules = {
+        later_rule("accuracy", "the spacing is not chosen for you; give spacing"),
+        later_rule("measured", measured), later_rule("compare", measured),
+        later_rule("layout", "mask layouts are not read; write mask.openings"),
+        later_rule("start", "runs start from the fresh stack; leave it out"),
+        later_rule("contour", "runs start from the fresh stack; leave it out"),
+        later_rule("fit", "parameters are not fitted; leave it out")};
+    for (const char* key : {"base", "vary", "plan", "linked", "answer", "keep", "slurm"})
+        rules.push_back(later_rule(key, study));
+    return rules;
+}
+
+Rule make_case_rules() {
+    Rule symmetry = word_rule("symmetry", {"extruded", "full"},
+                              "extruded: trenches and lines; full: anything that repeats in x and y")
+                        .required();
+    symmetry.later_words = {{"revolved", "round holes in r and z come later; use full"}};
+    Rule targets = dictionary_rule(
+        "targets",
+        sentence_rule("", "at least X, at most X, or X to Y",
+                      "^(at least +.+|at most +.+|[^ ]+ *[^ ]* +to +.+)$", "the goal").required(),
+        "goals for measured quantities, by their names");
+    Rule root = map_rule(
+        "",
+        {integer_rule("format", {1, 1}, "version of this form").required(),
+         text_rule("title", "one line that says what the case is").by_default("untitled"), symmetry,
+         quantities_rule("pitch", D::length, above_zero(),
+                         "width of the simulated period; full: one length or [x, y]").required(),
+         word_rule("sides", {"mirror", "periodic"}, "what lies beyond the period")
+             .by_default("mirror"),
+         quantity_rule("spacing", D::length, above_zero(),
+                       "grid spacing; rounded so that a whole number of cells fills the pitch")
+             .required(),
+         stack_rule(),
+         map_rule("liner",
+                  {text_rule("material", "what the liner is made of").required(),
+                   quantity_rule("thickness", D::length, above_zero(), "the same on every surface")
+                       .required()},
+                  "conformal film over mask and stack at the start"),
+         mask_rule(),
+         dictionary_rule("tool_log", anything_rule("", "as written"),
+                         "set points kept with the result, not used by the model"),
+         dictionary_rule("plasmas", plasma_rule().required(), "states of the plasma, by name").required(),
+         text_rule("chemistry", "name of a chemistry in configs, or path of a YAML file").required(),
+         recipe_rule().required(),
+         map_rule("measure",
+                  {dictionary_rule("cd",
+                                   sentence_rule("", "X above PLACE, X below PLACE or middle of FILM",
+                                                 place_pattern, "height").required(),
+                                   "heights at which the CD is measured, by label")
+                       .by_default("{}")},
+                  "what is measured beyond the standard list")
+             .by_default("{}"),
+         targets,
+         map_rule("frames", {quantity_rule("every", D::time, above_zero(),
+                                           "time between two frames; default: ten frames a run")},
+                  "how often the shape is written").by_default("{}"),
+         map_rule("sampling",
+                  {integer_rule("rays_per_point", {8, 1048576},
+                                "rays from each surface point for neutrals, a multiple of 8")
+                       .by_default("64"),
+                   integer_rule("ions_per_species", {8, 1073741824.0},
+                                "ions followed for reflections, a multiple of 8")
+                       .by_default("65536"),
+                   integer_rule("seed", {0, 9007199254740991.0}, "same seed, same bits")
+                       .by_default("1")},
+                  "how finely arrivals are sampled")
+             .by_default("{}")},
+        "a case: one etch from a film stack to a profile");
+    for (Rule& rule : later_rules())
+        root.members.push_back(std::move(rule));
+    return root;
+}
+
+} // namespace
+
+const Rule& case_rules() {
+    static const Rule rules = make_case_rules();
+    return rules;
+}
+
+} // namespace rille::engine

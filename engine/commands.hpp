@@ -1,0 +1,31 @@
+// SPDX-License-Identifier: Apache-2.0
+#pragma once
+
+#include <atomic>
+#include <cstdint>
+#include <optional>
+#include <string>
+#include <vector>
+
+namespace rille::engine {
+
+/// What every command understands.
+struct CommonOptions {
+    std::vector<std::string> overrides; ///< "key.path=value"
+    std::optional<std::uint64_t> seed;
+    int threads = 0; ///< 0 = all cores
+    bool quiet = false;
+    bool json = false;
+    std::string command_line; ///< as typed, for the record
+};
+
+/// Each command returns its exit status and throws InputError, OutputError, NumericsError.
+int run_command(const std::string& case_path, const std::string& folder, bool force,
+                const CommonOptions&, const std::atomic<bool>& stop);
+int check_command(const std::string& case_path, const CommonOptions&);
+/// Measures the last state that a run left in `folder` again, under the case kept there with the
+/// overrides given (`--set measure.cd.top=...`).
+int measure_command(const std::string& folder, const CommonOptions&);
+int schema_command();
+
+} // namespace rille::engine

@@ -1,0 +1,94 @@
+// SPDX-License-Identifier: Apache-2.0
+#include "engine/caution.hpp"
+#include "engine/commands.hpp"
+#include "engine/output_folder.hpp"
+#include "engine/problems.hpp"
+#include "engine/version.hpp"
+#include "geometry/check.hpp"
+
+#include <CLI/CLI.hpp>
+#include <csignal>
+#include <iostream>
+#include <tbb/global_control.h>
+
+namespace {
+
+using namespace rille;
+
+std::atomic<bool> stop{false};
+volatile std::sig_atomic_t signal_number = 0;
+
+void on_signal(int number) {
+    if (stop) std::_Exit(128 + number); // asked twice: the files written so far are whole
+    signal_number = number;
+    stop = true;
+}
+
+void add_common(CLI::App& command, engine::CommonOptions& options) {
+    command.add_option("--set", options.overrides, "Replace a value of the case: key.path=value");
+    command.add_option("--threads", options.threads, "Threads to use (default: all cores)")
+        ->check(CLI::Range(1, 4096));
+    command.add_option("--seed", options.seed, "Seed of everything random");
+    command.add_flag("--quiet", options.quiet, "Print nothing but errors");
+    command.add_flag("--json", options.json, "Print the result as JSON");
+}
+
+int dispatch(int argc, char** argv) {
+    CLI::App app("rille: the profile that a plasma etch leaves in a film stack");
+    app.footer(engine::caution);
+    app.set_version_flag("--version", "rille " + engine::version() + " (" + engine::revision() +
+                                          ", " + engine::build_info() + ")");
+    app.require_subcommand(1);
+    engine::CommonOptions options;
+    for (int i = 0; i < argc; ++i)
+        options.command_line += (i ? " " : "") + std::string(argv[i]);
+    std::string path, folder = "out";
+    bool force = false;
+    auto* run = app.add_subcommand("run", "Etch a case and write the result into a folder");
+    auto* check = app.add_subcommand("check", "Read a case, show it in full and what it will cost");
+    auto* measure = app.add_subcommand("measure", "Measure a finished run again");
+    auto* schema = app.add_subcommand("schema", "Print the JSON Schema of a case file");
+    run->add_option("case", path, "Case file (YAML)")->required();
+    run->add_option("-o", folder, "Folder for the result")->capture_default_str();
+    run->add_flag("--force", force, "Replace what an earlier run left in the folder");
+    run->footer(engine::caution);
+    check->add_option("case", path, "Case file (YAML)")->required();
+    measure->add_option("folder", folder, "Folder of a run")->required();
+    for (CLI::App* command : {run, check, measure})
+        add_common(*command, options);
+    try {
+        app.parse(argc, argv);
+    } catch (const CLI::ParseError& error) {
+        return app.exit(error) == 0 ? 0 : 2;
+    }
+    std::optional<tbb::global_control> limit;
+    if (options.threads > 0)
+        limit.emplace(tbb::global_control::max_allowed_parallelism, options.threads);
+    std::signal(SIGINT, on_signal);
+    std::signal(SIGTERM, on_signal);
+    if (*check) return engine::check_command(path, options);
+    if (*measure) return engine::measure_command(folder, options);
+    if (*schema) return engine::schema_command();
+    const int status = engine::run_command(path, folder, force, options, stop);
+    return signal_number ? 128 + signal_number : status;
+}
+
+} // namespace
+
+int main(int argc, char** argv) {
+    try {
+        return dispatch(argc, argv);
+    } catch (const engine::InputError& error) {
+        std::cerr << error.what() << '\n';
+        return 3;
+    } catch (const NumericsError& error) {
+        std::cerr << "numerics: " << error.what() << '\n';
+        return 4;
+    } catch (const engine::OutputError& error) {
+        std::cerr << "file: " << error.what() << '\n';
+        return 5;
+    } catch (const std::exception& error) {
+        std::cerr << "internal error: " << error.what() << '\n';
+        return 1;
+    }
+}

@@ -1,0 +1,82 @@
+// SPDX-License-Identifier: Apache-2.0
+#pragma once
+
+#include "engine/history.hpp"
+#include "engine/run_result.hpp"
+#include "geometry/metrology.hpp"
+
+#include <nlohmann/json_fwd.hpp>
+#include <optional>
+#include <string>
+#include <vector>
+
+namespace rille::engine {
+
+struct Case;
+struct Target;
+
+/// A measured quantity. `value` is empty where the quantity does not exist (no wall at that height,
+/// no mask left); `note` then says why.
+struct Metric {
+    std::string name;    ///< "depth centre", "bottom cd", "stop loss"
+    std::string feature; ///< the opening's name
+    std::optional<double> value;
+    std::string unit;          ///< nm, deg, 1
+    double sampling_error = 0; ///< 95 %, same unit; 0 where nothing is sampled
+    std::string definition;
+    std::string note;
+};
+
+enum class Verdict { met, missed, undecided };
+
+struct TargetVerdict {
+    std::string target; ///< "bottom cd: 55 nm to 65 nm"
+    std::string metric, feature;
+    Verdict verdict = Verdict::undecided;
+    /// What the numbers alone say, before the standing of the parameters is asked.
+    Verdict by_numbers = Verdict::undecided;
+    std::string reason;
+};
+
+struct Metrics {
+    double time_s = 0;
+    std::vector<Metric> metrics;
+    std::vector<TargetVerdict> targets;
+    /// Lowest film that is open over the whole floor, and every film above it that is not: the
+    /// clear/not cleared statement per feature.
+    struct Clearing {
+        std::string feature, film;
+        bool cleared = false;
+        double remaining_nm = 0; ///< largest thickness left over the floor
+    };
+    std::vector<Clearing> clearing;
+
+    /// The metric of that name (of that feature if given), or null.
+    const Metric* find(const std::string& name, const std::string& feature = "") const;
+};
+
+/// The feature sites of a case: its openings.
+std::vector<geometry::FeatureSite> feature_sites(const Case&);
+
+/// Every metric that exists for the case's symmetry, with the targets judged. Definitions are in
+/// the metrics themselves.
+Metrics measure(const Case&, const SurfaceState&);
+/// Fills the measured columns of a history row.
+void measure_row(const Case&, const geometry::Surface&, HistoryRow&);
+
+/// 95 % sampling error of a measured quantity: w_b = sum weight * u_b[element] over its elements.
+double sampling_error(const geometry::Measured&,
+                      const std::vector<std::vector<double>>& displacement);
+
+/// Judges one value with its 95 % half-width against a range.
+Verdict judge(double value, double error, const Target&);
+/// Judges all targets. Where parameters are illustrative or from memory the verdict is undecided,
+/// and the reason names them.
+std::vector<TargetVerdict> judge_targets(const Case&, const Metrics&);
+
+const char* verdict_name(Verdict);
+nlohmann::json metrics_json(const Case&, const Metrics&);
+/// The table for the terminal; `colour` adds none but the verdict's own words.
+std::string metrics_table(const Case&, const Metrics&);
+
+} // namespace rille::engine

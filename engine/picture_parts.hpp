@@ -1,0 +1,53 @@
+// SPDX-License-Identifier: Apache-2.0
+// Internal to the picture: the section's frame and what is drawn into it.
+#pragma once
+
+#include "engine/case.hpp"
+#include "engine/palette.hpp"
+#include "engine/picture.hpp"
+#include "engine/svg.hpp"
+
+#include <string>
+#include <utility>
+#include <vector>
+
+namespace rille::engine {
+
+/// Maps the section (x, z) [nm] to the page.
+struct View {
+    double x_min = 0, x_max = 1, z_low = 0, z_high = 1; ///< [nm]
+    double scale_x = 1, scale_z = 1;                    ///< [px/nm]
+    double left = 0, top = 0;                           ///< [px]
+
+    double x(double nm) const { return left + (nm - x_min) * scale_x; }
+    double y(double nm) const { return top + (z_high - nm) * scale_z; }
+    double width() const { return (x_max - x_min) * scale_x; }
+    double height() const { return (z_high - z_low) * scale_z; }
+    double right() const { return left + width(); }
+    double bottom() const { return top + height(); }
+    std::array<double, 2> at(const std::array<double, 2>& p) const { return {x(p[0]), y(p[1])}; }
+};
+
+/// What all parts of the picture share.
+struct PictureContext {
+    const Case& c;
+    const std::vector<PictureFront>& fronts; ///< those that are drawn
+    const SurfaceState& last;
+    const Section& profile; ///< the final front
+    const Metrics& metrics;
+    std::vector<MaterialLook> looks;
+};
+
+/// Colour of front `index` of `count`, light to dark.
+std::string front_colour(std::size_t index, std::size_t count);
+/// "1.5 s", "40 s".
+std::string time_text(double seconds);
+/// The 1-2-5 number nearest below `value`.
+double round_length(double value);
+
+void draw_section(Svg&, const View&, const PictureContext&);
+void draw_depth_axis(Svg&, const View&);
+void draw_scale_bars(Svg&, const View&);
+void draw_film_column(Svg&, const View&, const PictureContext&);
+
+} // namespace rille::engine

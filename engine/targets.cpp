@@ -1,0 +1,197 @@
+// SPDX-License-Identifier: Apache-2.0
+#include "engine/case.hpp"
+#include "engine/metrics.hpp"
+#include "engine/number_text.hpp"
+
+#include <algorithm>
+#include <cmath>
+#include <fmt/format.h>
+#include <nlohmann/json.hpp>
+
+namespace rille::engine {
+namespace {
+
+using nlohmann::json;
+
+/// The parameters that keep a verdict open, or nothing.
+std::string weak_parameters(const Case& c) {
+    std::string text;
+    const auto add = [&](fluxes::Standing standing, const char* name) {
+        const auto found = c.standing.find(standing);
+        if (found == c.standing.end() || found->second == 0)
+            return;
+        text += fmt::format("{}{} {}", text.empty() ? "" : " and ", found->second, name);
+    };
+    add(fluxes::Standing::illustrative, "illustrative");
+    add(fluxes::Standing::from_memory, "from memory");
+    return text.empty() ? "" : fmt::format("of the parameters of {}, {}", c.chemistry, text);
+}
+
+std::string range_text(const Target& target, const std::string& unit) {
+    const std::string suffix = unit == "1" ? "" : " " + unit;
+    if (target.at_least && target.at_most)
+        return rounded(*target.at_least) + " to " + rounded(*target.at_most) + suffix;
+    if (target.at_least)
+        return "at least " + rounded(*target.at_least) + suffix;
+    return "at most " + (target.at_most ? rounded(*target.at_most) : "?") + suffix;
+}
+
+TargetVerdict judge_metric(const Case& c, const Target& target, const Metric& metric) {
+    TargetVerdict result;
+    result.target = target.metric + ": " +
+                    (target.text.empty() ? range_text(target, metric.unit) : target.text);
+    result.metric = metric.name;
+    result.feature = metric.feature;
+    if (metric.value) {
+        result.by_numbers = judge(*metric.value, metric.sampling_error, target);
+        result.reason = with_error(*metric.value, metric.sampling_error) +
+                        (metric.unit == "1" ? "" : " " + metric.unit);
+        if (result.by_numbers == Verdict::undecided)
+            result.reason += " straddles the limit";
+    } else {
+        result.by_numbers = Verdict::missed;
+        result.reason = "no such value: " + metric.note;
+    }
+    result.verdict = result.by_numbers;
+    const std::string weak = weak_parameters(c);
+    if (!weak.empty() && result.by_numbers != Verdict::undecided) {
+        result.verdict = Verdict::undecided;
+        result.reason +=
+            fmt::format("; {} by the numbers, but {}", verdict_name(result.by_numbers), weak);
+    }
+    return result;
+}
+
+json metric_json(const Metric& m) {
+    json entry = {{"name", m.name},
+                  {"feature", m.feature},
+                  {"value", nullptr},
+                  {"unit", m.unit},
+                  {"sampling_error", m.sampling_error},
+                  {"grid_error", "not assessed"},
+                  {"definition", m.definition}};
+    if (m.value)
+        entry["value"] = *m.value;
+    else
+        entry["note"] = m.note;
+    return entry;
+}
+
+/// Pads by characters seen, not bytes: the table holds a two-byte plus-minus sign.
+std::string padded(const std::string& text, std::size_t width) {
+    std::size_t seen = 0;
+    for (const char ch : text)
+        seen += (static_cast<unsigned char>(ch) & 0xC0) != 0x80;
+    return text + std::string(seen < width ? width - seen : 0, ' ');
+}
+
+std::string with_unit(const std::string& value, const std::string& unit) {
+    return unit == "1" ? value : value + " " + unit;
+}
+
+} // namespace
+
+const Metric* Metrics::find(const std::string& name, const std::string& feature) const {
+    const auto found = std::find_if(metrics.begin(), metrics.end(), [&](const Metric& m) {
+        return m.name == name && (feature.empty() || m.feature == feature);
+    });
+    return found == metrics.end() ? nullptr : &*found;
+}
+
+const char* verdict_name(Verdict verdict) {
+    switch (verdict) {
+    case Verdict::met:
+        return "met";
+    case Verdict::missed:
+        return "missed";
+    default:
+        return "undecided";
+    }
+}
+
+Verdict judge(double value, double error, const Target& target) {
+    if (!std::isfinite(value) || !std::isfinite(error))
+        return Verdict::undecided;
+    const double low = value - error, high = value + error;
+    if ((target.at_least && high < *target.at_least) || (target.at_most && low > *target.at_most))
+        return Verdict::missed;
+    if ((target.at_least && low < *target.at_least) || (target.at_most && high > *target.at_most))
+        return Verdict::undecided;
+    return Verdict::met;
+}
+
+std::vector<TargetVerdict> judge_targets(const Case& c, const Metrics& metrics) {
+    std::vector<TargetVerdict> verdicts;
+    for (const Target& target : c.targets) {
+        std::string name = target.metric, feature;
+        if (const auto of = name.rfind(" of "); of != std::string::npos) {
+            feature = name.substr(of + 4);
+            name.resize(of);
+        }
+        bool found = false;
+        for (const Metric& metric : metrics.metrics)
+            if (metric.name == name && (feature.empty() || metric.feature == feature)) {
+                verdicts.push_back(judge_metric(c, target, metric));
+                found = true;
+            }
+        if (!found) {
+            TargetVerdict none;
+            none.target = target.metric + ": " + target.text;
+            none.metric = name;
+            none.reason = "this case has no metric of that name";
+            verdicts.push_back(none);
+        }
+    }
+    return verdicts;
+}
+
+json metrics_json(const Case& c, const Metrics& metrics) {
+    json list = json::array(), targets = json::array(), clearing = json::array();
+    for (const Metric& m : metrics.metrics)
+        list.push_back(metric_json(m));
+    for (const TargetVerdict& v : metrics.targets)
+        targets.push_back({{"target", v.target},
+                           {"metric", v.metric},
+                           {"feature", v.feature},
+                           {"verdict", verdict_name(v.verdict)},
+                           {"by_numbers", verdict_name(v.by_numbers)},
+                           {"reason", v.reason}});
+    for (const Metrics::Clearing& entry : metrics.clearing)
+        clearing.push_back({{"feature", entry.feature},
+                            {"film", entry.film},
+                            {"cleared", entry.cleared},
+                            {"remaining_nm", entry.remaining_nm}});
+    return {{"title", c.title},
+            {"time_s", metrics.time_s},
+            {"errors",
+             "sampling_error: 95 %, from 8 batches; grid error and the uncertainty of the "
+             "parameters are not assessed"},
+            {"metrics", list},
+            {"clearing", clearing},
+            {"targets", targets}};
+}
+
+std::string metrics_table(const Case& c, const Metrics& metrics) {
+    std::size_t width = 0;
+    const bool several = c.mask.openings.size() > 1;
+    const auto label = [&](const Metric& m) {
+        return several ? m.feature + ": " + m.name : m.name;
+    };
+    for (const Metric& m : metrics.metrics)
+        width = std::max(width, label(m).size());
+    std::string text;
+    for (const Metric& m : metrics.metrics) {
+        const std::string value = m.value
+                                      ? with_unit(with_error(*m.value, m.sampling_error), m.unit)
+                                      : "-  (" + m.note + ")";
+        text += "  " + padded(label(m), width + 2) + value + "\n";
+    }
+    for (const Metrics::Clearing& entry : metrics.clearing)
+        text += "  " + padded(several ? entry.feature + ": " + entry.film : entry.film, width + 2) +
+                (entry.cleared ? "cleared" : rounded(entry.remaining_nm) + " nm left") + "\n";
+    for (const TargetVerdict& v : metrics.targets)
+        text += "  " + padded(verdict_name(v.verdict), 10) + v.target + "  (" + v.reason + ")\n";
+    return text + "  ± 95 % sampling error; grid error and parameter uncertainty: not assessed\n";
+}
+
+} // namespace rille::engine

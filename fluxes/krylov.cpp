@@ -1,0 +1,97 @@
+// SPDX-License-Identifier: Apache-2.0
+#include "fluxes/krylov.hpp"
+
+#include "geometry/check.hpp"
+
+#include <Eigen/IterativeLinearSolvers>
+#include <Eigen/SparseCore>
+
+namespace rille::fluxes {
+namespace {
+
+/// What Eigen's iterative solvers ask of a matrix that exists only as a product.
+class Product;
+
+} // namespace
+} // namespace rille::fluxes
+
+namespace Eigen::internal {
+template <>
+struct traits<rille::fluxes::Product> : traits<SparseMatrix<double>> {};
+} // namespace Eigen::internal
+
+namespace rille::fluxes {
+namespace {
+
+class Product : public Eigen::EigenBase<Product> {
+public:
+    using Scalar = double;
+    using RealScalar = double;
+    using StorageIndex = int;
+    enum {
+        ColsAtCompileTime = Eigen::Dynamic,
+        MaxColsAtCompileTime = Eigen::Dynamic,
+        IsRowMajor = false
+    };
+
+    Product(const LinearOperator& apply, Eigen::Index size) : apply_(apply), size_(size) {}
+    Eigen::Index rows() const { return size_; }
+    Eigen::Index cols() const { return size_; }
+    const LinearOperator& apply() const { return apply_; }
+
+    template <typename Rhs>
+    Eigen::Product<Product, Rhs, Eigen::AliasFreeProduct>
+    operator*(const Eigen::MatrixBase<Rhs>& x) const {
+        return {*this, x.derived()};
+    }
+
+private:
+    const LinearOperator& apply_;
+    Eigen::Index size_;
+};
+
+} // namespace
+} // namespace rille::fluxes
+
+namespace Eigen::internal {
+template <typename Rhs>
+struct generic_product_impl<rille::fluxes::Product, Rhs, SparseShape, DenseShape, GemvProduct>
+    : generic_product_impl_base<rille::fluxes::Product, Rhs,
+                                generic_product_impl<rille::fluxes::Product, Rhs>> {
+    template <typename Dest>
+    static void scaleAndAddTo(Dest& dest, const rille::fluxes::Product& m, const Rhs& rhs,
+                              const double& alpha) {
+        const VectorXd x = rhs;
+        VectorXd y(x.size());
+        m.apply()(x.data(), y.data());
+        dest.noalias() += alpha * y;
+    }
+};
+} // namespace Eigen::internal
+
+namespace rille::fluxes {
+
+int solve_linear(const LinearOperator& apply, const std::vector<double>& rhs,
+                 std::vector<double>& x, double tolerance) {
+    const auto n = static_cast<Eigen::Index>(rhs.size());
+    const Product matrix(apply, n);
+    Eigen::BiCGSTAB<Product, Eigen::IdentityPreconditioner> solver(matrix);
+    solver.setTolerance(tolerance);
+    solver.setMaxIterations(2000);
+    const Eigen::Map<const Eigen::VectorXd> b(rhs.data(), n);
+    Eigen::Map<Eigen::VectorXd> solution(x.data(), n);
+    int iterations = 0;
+    // The recursive residual drifts from the true one: start again from what is reached.
+    for (int attempt = 0; attempt < 5; ++attempt) {
+        solution = solver.solveWithGuess(b, solution.eval()).eval();
+        iterations += static_cast<int>(solver.iterations());
+        Eigen::VectorXd residual(n);
+        apply(x.data(), residual.data());
+        residual -= b;
+        if (residual.norm() <= 2 * tolerance * b.norm())
+            return iterations;
+    }
+    throw NumericsError("the neutral transport equations did not converge");
+}
+
+} // namespace rille::fluxes

@@ -1,0 +1,203 @@
+// SPDX-License-Identifier: Apache-2.0
+#include "fluxes/surface_step.hpp"
+
+#include "fluxes/coupling.hpp"
+#include "fluxes/direct_ions.hpp"
+#include "fluxes/reflected_ions.hpp"
+#include "geometry/check.hpp"
+
+#include <tbb/blocked_range.h>
+#include <tbb/parallel_for.h>
+
+#include <algorithm>
+#include <optional>
+
+namespace rille::fluxes {
+namespace {
+
+constexpr double pi = 3.14159265358979323846;
+
+template <typename Body>
+void for_elements(std::size_t n, const Body& body) {
+    tbb::parallel_for(tbb::blocked_range<std::size_t>(0, n, 32), [&](const auto& range) {
+        for (std::size_t e = range.begin(); e != range.end(); ++e)
+            body(static_cast<int>(e));
+    });
+}
+
+/// Everything ions bring to the elements at their own normals.
+struct IonArrivals {
+    std::optional<DirectIons> direct;
+    int tallies = 0;
+    std::vector<double> reflected;          ///< [element][tally], mean over batches
+    std::vector<double> total;              ///< [element][tally], direct and reflected
+    std::vector<std::vector<double>> batch; ///< [batch][element][tally]: the same of one batch
+
+    const double* at(int element, int b) const {
+        return (b < 0 ? total : batch[b]).data() + std::size_t(element) * tallies;
+    }
+};
+
+bool reflects(const std::vector<IonReflection>& laws) {
+    return std::any_of(laws.begin(), laws.end(),
+                       [](const IonReflection& law) { return law.probability > 0; });
+}
+
+struct Setting {
+    const geometry::Domain& domain;
+    const geometry::Surface& surface;
+    const geometry::RayCaster& caster;
+    const MaterialsInReach& reach;
+    const Mechanism& mechanism;
+    const Sources& sources;
+    const Sampling& sampling;
+
+    int outermost(int e) const { return reach.material[reach.first[e]]; }
+    SurfaceResponse respond_at(int material, const double* tallies, const double* neutrals) const {
+        return respond(mechanism, material, {tallies, neutrals, sources.wafer_temperature_k});
+    }
+};
+
+IonArrivals gather_ions(const Setting& s, const std::vector<IonReflection>& reflection) {
+    IonArrivals ions;
+    const std::size_t n = s.surface.size(), m = s.mechanism.tallies.size();
+    ions.tallies = static_cast<int>(m);
+    ions.reflected.assign(n * m, 0);
+    ions.total.assign(n * m, 0);
+    ions.batch.assign(batches, std::vector<double>(n * m, 0));
+    if (s.sources.ions.empty())
+        return ions;
+    const Sampling& sampling = s.sampling;
+    ions.direct.emplace(
+        s.domain, s.surface, s.caster, s.sources.ions, s.mechanism.tallies,
+        DirectIons::Options{sampling.ion_directions, sampling.seed, sampling.refresh});
+    ReflectedIons bounced;
+    if (sampling.ions_per_species > 0 && m > 0 && reflects(reflection)) {
+        std::vector<int> material(n);
+        for (std::size_t e = 0; e < n; ++e)
+            material[e] = s.outermost(int(e));
+        bounced = trace_reflected(s.domain, s.surface, s.caster, material, s.sources.ions,
+                                  s.mechanism.tallies, reflection,
+                                  {sampling.ions_per_species, sampling.seed, sampling.refresh});
+    }
+    for_elements(n, [&](int e) {
+        for (std::size_t t = 0; t < m; ++t) {
+            const std::size_t i = e * m + t;
+            for (int b = 0; b < batches; ++b) {
+                const double part = bounced.value.empty() ? 0 : bounced.value[b][t * n + e];
+                ions.reflected[i] += part / batches;
+                ions.batch[b][i] = part + ions.direct->tally_batch(b, int(t), e);
+            }
+            ions.total[i] = ions.direct->tally(int(t), e) + ions.reflected[i];
+        }
+    });
+    return ions;
+}
+
+/// Neutrals solved together with the sticking that the kinetics of the outermost material gives.
+CoupledArrivals gather_neutrals(const Setting& s, const IonArrivals& ions,
+                                const SurfaceStep* previous) {
+    CoupledArrivals none;
+    none.batch_flux.resize(batches);
+    if (s.sources.neutrals.empty())
+        return none;
+    std::vector<double> open;
+    for (const NeutralSource& source : s.sources.neutrals)
+        open.push_back(source.flux);
+    const Exchange exchange(s.domain, s.surface, s.caster,
+                            {s.sampling.rays_per_element, s.sampling.seed, s.sampling.refresh});
+    const StickingOf sticking = [&](int e, int batch, const double* neutrals) {
+        return s.respond_at(s.outermost(e), ions.at(e, batch), neutrals).sticking;
+    };
+    static const std::vector<std::vector<double>> nothing;
+    return solve_coupled(exchange, open, sticking, previous ? previous->neutral : nothing);
+}
+
+std::array<double, max_species> at_element(const std::vector<std::vector<double>>& flux, int e) {
+    std::array<double, max_species> values{};
+    for (std::size_t k = 0; k < flux.size(); ++k)
+        values[k] = flux[k][e];
+    return values;
+}
+
+/// Rates of every material in reach of every element over the normal's angle.
+void tabulate(const Setting& s, const IonArrivals& ions, SurfaceStep& step) {
+    geometry::NormalRates& rates = step.rates;
+    const bool any_ions = ions.direct && ions.tallies > 0;
+    rates.angles = any_ions ? ions.direct->rate_angles()
+                            : std::vector<double>{s.domain.extruded() ? -pi : 0.0, pi};
+    rates.first_row = s.reach.first;
+    rates.material = s.reach.material;
+    const std::size_t angles = rates.angles.size();
+    rates.table.assign(rates.material.size() * angles, 0);
+    for_elements(s.surface.size(), [&](int e) {
+        const auto neutrals = at_element(step.neutral, e);
+        const double* bounced = ions.reflected.data() + std::size_t(e) * ions.tallies;
+        std::vector<double> tallies(ions.tallies), last;
+        for (std::size_t a = 0; a < angles; ++a) {
+            for (int m = 0; m < ions.tallies; ++m)
+                tallies[m] =
+                    bounced[m] + (any_ions ? ions.direct->tally_at(m, e, rates.angles[a]) : 0.0);
+            const bool same = a > 0 && tallies == last; // turned away from every ion, or no ions
+            for (int row = rates.first_row[e]; row < rates.first_row[e + 1]; ++row) {
+                double* value = rates.table.data() + std::size_t(row) * angles + a;
+                *value =
+                    same ? value[-1]
+                         : s.respond_at(rates.material[row], tallies.data(), neutrals.data()).rate;
+            }
+            last = tallies;
+        }
+    });
+}
+
+void respond_everywhere(const Setting& s, const IonArrivals& ions,
+                        const std::vector<std::vector<std::vector<double>>>& batch_flux,
+                        SurfaceStep& step) {
+    const std::size_t n = s.surface.size();
+    step.response.resize(n);
+    step.growth_material.assign(n, -1);
+    step.rate_batch.assign(batches, std::vector<double>(n, 0));
+    for_elements(n, [&](int e) {
+        const int material = s.outermost(e);
+        const auto neutrals = at_element(step.neutral, e);
+        const SurfaceResponse r = s.respond_at(material, ions.at(e, -1), neutrals.data());
+        step.response[e] = r;
+        if (r.rate < 0)
+            step.growth_material[e] = r.grown_material;
+        for (int b = 0; b < batches; ++b) {
+            const auto of_batch = at_element(batch_flux[b], e);
+            step.rate_batch[b][e] = s.respond_at(material, ions.at(e, b), of_batch.data()).rate;
+        }
+    });
+}
+
+} // namespace
+
+SurfaceStep solve_surface(const geometry::Domain& domain, const geometry::Surface& surface,
+                          const geometry::RayCaster& caster, const MaterialsInReach& reach,
+                          const Mechanism& mechanism, const std::vector<IonReflection>& reflection,
+                          const Sources& sources, const Sampling& sampling,
+                          const SurfaceStep* previous) {
+    const std::size_t n = surface.size();
+    RILLE_CHECK(reach.first.size() == n + 1, "materials in reach of every element");
+    RILLE_CHECK(sources.neutrals.size() <= std::size_t(max_species), "too many neutral species");
+    for (std::size_t e = 0; e < n; ++e)
+        RILLE_CHECK(reach.first[e] < reach.first[e + 1], "at least one material in reach");
+    const Setting setting{domain, surface, caster, reach, mechanism, sources, sampling};
+    const IonArrivals ions = gather_ions(setting, reflection);
+    CoupledArrivals neutrals = gather_neutrals(setting, ions, previous);
+
+    SurfaceStep step;
+    step.neutral = std::move(neutrals.flux);
+    step.iterations = neutrals.iterations;
+    step.residual = neutrals.residual;
+    step.ion_flux.assign(sources.ions.size(), std::vector<double>(n, 0));
+    for (std::size_t i = 0; i < sources.ions.size(); ++i)
+        for (std::size_t e = 0; e < n; ++e)
+            step.ion_flux[i][e] = ions.direct->flux(int(i), int(e));
+    respond_everywhere(setting, ions, neutrals.batch_flux, step);
+    tabulate(setting, ions, step);
+    return step;
+}
+
+} // namespace rille::fluxes

@@ -1,0 +1,53 @@
+// SPDX-License-Identifier: Apache-2.0
+#pragma once
+
+#include "geometry/band.hpp"
+
+#include <cstddef>
+#include <functional>
+#include <utility>
+#include <vector>
+
+namespace rille::geometry {
+
+/// Half-width of the band [cells]: the stencil of a cell next to the contour reaches this far.
+constexpr double band_half_width = 3.0;
+
+/// Calls body(begin, end) for consecutive ranges of [0, n), in parallel. The ranges depend on n
+/// alone; bodies must write disjoint outputs only, so results do not depend on the thread count.
+void for_ranges(std::size_t n, const std::function<void(std::size_t, std::size_t)>& body);
+/// Largest of body(begin, end) over the same ranges (exact for any thread count), at least 0.
+double largest_of_ranges(std::size_t n,
+                         const std::function<double(std::size_t, std::size_t)>& body);
+
+/// Finds cells by their indices: per column (i, j) the numbers of its cells by rising k. Every column
+/// crosses the front, so the nearest cell of a column also tells the sign beyond the band.
+class ColumnIndex {
+  public:
+    void build(const Band&);
+    /// Number of cell (i, j, k), or -1 outside the band; 0 <= i < cells_x, 0 <= j < cells_y.
+    int find(const Band&, int i, int j, int k) const;
+    /// phi [nm] of node (i, j, k); outside the band +-(half-width) by the side it is on.
+    double phi(const Band&, int i, int j, int k) const;
+    std::size_t memory_bytes() const;
+
+  private:
+    std::pair<const int*, const int*> column(const Band&, int i, int j) const;
+    std::vector<int> first_;
+    std::vector<int> cell_;
+};
+
+/// Index of a node beyond the sides: mirrored or wrapped back into [0, count).
+int fold_index(int i, int count, Sides sides);
+
+/// Fills band.neighbour from band.cells (sorted by k, j, i) and the domain.
+void connect(Band& band);
+
+/// Drops cells farther than the half-width from the contour and adds missing ones, `layers` times;
+/// new values come from the eikonal equation with the old ones as boundary values.
+void retopologise(Band& band, int layers);
+
+/// Smallest |phi| [nm] among cells with a missing neighbour: how near the contour came to the edge.
+double edge_distance(const Band& band);
+
+} // namespace rille::geometry

@@ -1,0 +1,201 @@
+// SPDX-License-Identifier: Apache-2.0
+#include "geometry/closest_element.hpp"
+
+#include "geometry/band_topology.hpp"
+
+#include <algorithm>
+#include <cmath>
+#include <limits>
+
+namespace rille::geometry {
+
+namespace {
+
+constexpr int nearest_ring = 1; ///< cells within this distance [cells] of the contour come first
+
+Vec3 nearest_on_segment(const Vec3& a, const Vec3& b, const Vec3& p) {
+    const Vec3 along = b - a;
+    const double square = along.dot(along);
+    if (square == 0) return a;
+    return a + along * std::clamp((p - a).dot(along) / square, 0.0, 1.0);
+}
+
+/// Nearest point of triangle abc: its inside where p projects into it, else its nearest edge.
+Vec3 nearest_on_triangle(const Vec3& a, const Vec3& b, const Vec3& c, const Vec3& p) {
+    const Vec3 n = (b - a).cross(c - a);
+    const double square = n.dot(n);
+    if (square > 0) {
+        const Vec3 q = p - n * ((p - a).dot(n) / square);
+        if ((b - a).cross(q - a).dot(n) >= 0 && (c - b).cross(q - b).dot(n) >= 0 &&
+            (a - c).cross(q - c).dot(n) >= 0)
+            return q;
+    }
+    Vec3 best = nearest_on_segment(a, b, p);
+    for (const Vec3& q : {nearest_on_segment(b, c, p), nearest_on_segment(c, a, p)})
+        if ((q - p).length() < (best - p).length()) best = q;
+    return best;
+}
+
+/// The candidate with its merits; smaller is better.
+struct Candidate {
+    int element = -1;
+    double distance = std::numeric_limits<double>::infinity();
+    double facing = 0;
+    Vec3 foot;
+};
+
+class Search {
+  public:
+    Search(const Band& band, const Surface& surface, const std::vector<double>& moved)
+        : band_(band), surface_(surface), moved_(moved), domain_(band.domain),
+          tolerance_(1e-9 * band.domain.spacing) {
+        assign_homes();
+    }
+
+    ClosestElements run();
+
+  private:
+    void assign_homes();
+    Vec3 shift_of(int e) const {
+        return moved_.empty() ? Vec3(0) : surface_.normal[e] * -moved_[e];
+    }
+    /// Nearest image of p to point c in a periodic domain.
+    Vec3 image(Vec3 p, const Vec3& c) const {
+        if (domain_.sides != Sides::periodic) return p;
+        p.x -= domain_.width_x() * std::round((p.x - c.x) / domain_.width_x());
+        if (!domain_.extruded())
+            p.y -= domain_.width_y() * std::round((p.y - c.y) / domain_.width_y());
+        return p;
+    }
+    void offer(const Vec3& p, int e, Candidate& best) const;
+    bool better(double distance, double facing, int e, const Candidate& best) const;
+    void improve(const ClosestElements& old, std::size_t c, ClosestElements& out) const;
+
+    const Band& band_;
+    const Surface& surface_;
+    const std::vector<double>& moved_;
+    const Domain domain_;
+    double tolerance_;
+    std::vector<int> home_first_, home_element_;
+};
+
+void Search::assign_homes() {
+    ColumnIndex index;
+    index.build(band_);
+    const double h = domain_.spacing;
+    const int n = static_cast<int>(surface_.size());
+    std::vector<int> home(n, -1);
+    home_first_.assign(band_.size() + 1, 0);
+    for (int e = 0; e < n; ++e) {
+        const Vec3 c = surface_.centre[e] + shift_of(e);
+        const int i = static_cast<int>(std::floor((c.x - domain_.x_min()) / h));
+        const int j = domain_.extruded() ? 0
+                                         : static_cast<int>(std::floor((c.y - domain_.y_min()) / h));
+        home[e] = index.find(band_, fold_index(i, domain_.cells_x, domain_.sides),
+                             fold_index(j, domain_.cells_y, domain_.sides),
+                             static_cast<int>(std::floor(c.z / h)));
+        if (home[e] >= 0) ++home_first_[home[e] + 1];
+    }
+    for (std::size_t c = 1; c < home_first_.size(); ++c) home_first_[c] += home_first_[c - 1];
+    std::vector<int> at(home_first_.begin(), home_first_.end() - 1);
+    home_element_.resize(home_first_.back());
+    for (int e = 0; e < n; ++e)
+        if (home[e] >= 0) home_element_[at[home[e]]++] = e;
+}
+
+bool Search::better(double distance, double facing, int e, const Candidate& best) const {
+    if (best.element < 0) return true;
+    if (distance < best.distance - tolerance_) return true;
+    if (distance > best.distance + tolerance_) return false;
+    if (std::fabs(facing - best.facing) > 1e-9) return facing > best.facing;
+    const double level = std::fabs(surface_.normal[e].z) -
+                         std::fabs(surface_.normal[best.element].z);
+    return std::fabs(level) > 1e-9 ? level > 0 : e < best.element;
+}
+
+void Search::offer(const Vec3& p, int e, Candidate& best) const {
+    if (e == best.element) return;
+    const Vec3 shift = shift_of(e);
+    const Vec3 local = image(p, surface_.centre[e] + shift);
+    const Vec3 foot = nearest_point(surface_, domain_.extruded(), e, local - shift) + shift;
+    const Vec3 away = local - foot;
+    const double distance = away.length();
+    if (distance > best.distance + tolerance_) return;
+    const double facing = distance > tolerance_
+                              ? std::fabs(away.dot(surface_.normal[e])) / distance
+                              : 1.0;
+    if (!better(distance, facing, e, best)) return;
+    best = {e, distance, facing, p - away};
+}
+
+void Search::improve(const ClosestElements& old, std::size_t c, ClosestElements& out) const {
+    const Band::Cell& cell = band_.cells[c];
+    const Vec3 p = domain_.node(cell.i, cell.j, cell.k);
+    Candidate best;
+    if (old.element[c] >= 0) offer(p, old.element[c], best);
+    for (int h = home_first_[c]; h < home_first_[c + 1]; ++h) offer(p, home_element_[h], best);
+    for (const int n : band_.neighbour[c]) {
+        if (n < 0 || n == static_cast<int>(c)) continue;
+        if (old.element[n] >= 0) offer(p, old.element[n], best);
+        for (int h = home_first_[n]; h < home_first_[n + 1]; ++h) offer(p, home_element_[h], best);
+    }
+    out.element[c] = best.element;
+    out.foot[c] = best.foot;
+}
+
+ClosestElements Search::run() {
+    const std::size_t n = band_.size();
+    ClosestElements now;
+    now.element.assign(n, -1);
+    now.foot.resize(n);
+    for (std::size_t c = 0; c < n; ++c)
+        if (home_first_[c] < home_first_[c + 1]) now.element[c] = home_element_[home_first_[c]];
+    // Cells by distance in rings of one cell: inner rings are settled before outer ones ask them.
+    std::vector<std::vector<int>> rings(1 + static_cast<int>(band_half_width));
+    for (std::size_t c = 0; c < n; ++c) {
+        const double ring = std::fabs(band_.phi[c]) / (nearest_ring * domain_.spacing);
+        rings[std::min(rings.size() - 1, static_cast<std::size_t>(ring))].push_back(
+            static_cast<int>(c));
+    }
+    ClosestElements next = now;
+    for (const std::vector<int>& ring : rings)
+        for (int round = 0; round < 3; ++round) {
+            for_ranges(ring.size(), [&](std::size_t begin, std::size_t end) {
+                for (std::size_t r = begin; r < end; ++r) improve(now, ring[r], next);
+            });
+            for_ranges(ring.size(), [&](std::size_t begin, std::size_t end) {
+                for (std::size_t r = begin; r < end; ++r) {
+                    now.element[ring[r]] = next.element[ring[r]];
+                    now.foot[ring[r]] = next.foot[ring[r]];
+                }
+            });
+        }
+    return now;
+}
+
+} // namespace
+
+Vec3 nearest_point(const Surface& s, bool extruded, int e, const Vec3& p) {
+    if (extruded) return nearest_on_segment(s.vertices[s.corners[e][0]], s.vertices[s.corners[e][1]], p);
+    const Vec3 from = p - s.centre[e];
+    const Vec3 across = from - s.normal[e] * from.dot(s.normal[e]);
+    const double square = across.dot(across), radius_square = s.area[e] * (1 / 3.14159265358979);
+    if (square <= radius_square) return s.centre[e] + across;
+    return s.centre[e] + across * std::sqrt(radius_square / square);
+}
+
+Vec3 exact_nearest_point(const Surface& s, bool extruded, int e, const Vec3& p) {
+    if (extruded) return nearest_point(s, extruded, e, p);
+    const auto& q = s.corners[e];
+    const Vec3 first = nearest_on_triangle(s.vertices[q[0]], s.vertices[q[1]], s.vertices[q[2]], p);
+    if (q[2] == q[3]) return first;
+    const Vec3 second = nearest_on_triangle(s.vertices[q[0]], s.vertices[q[2]], s.vertices[q[3]], p);
+    return (second - p).length() < (first - p).length() ? second : first;
+}
+
+ClosestElements closest_elements(const Band& band, const Surface& surface,
+                                 const std::vector<double>& moved) {
+    return Search(band, surface, moved).run();
+}
+
+} // namespace rille::geometry

@@ -1,0 +1,146 @@
+// SPDX-License-Identifier: Apache-2.0
+#include "geometry/dual_mesh.hpp"
+#include "geometry/ranges.hpp"
+
+#include <algorithm>
+#include <cmath>
+
+namespace rille::geometry {
+
+namespace {
+
+double minmod(double a, double b) {
+    if (a * b <= 0) return 0;
+    return std::fabs(a) < std::fabs(b) ? a : b;
+}
+
+/// Change of phi from an outermost node to the mirror side half a cell further out along `axis`,
+/// from inside: exact for linear phi, third order where phi is smooth and even.
+double change_to_side(const Band& band, int node, int axis, bool low) {
+    const int inwards = 2 * axis + (low ? 1 : 0);
+    const int one = band.neighbour[node][inwards];
+    if (one < 0 || one == node) return 0;
+    const double slope = band.phi[one] - band.phi[node];
+    const int two = band.neighbour[one][inwards];
+    const double bend =
+        two < 0 || two == one
+            ? 0
+            : minmod(slope, band.phi[two] - 2 * band.phi[one] + band.phi[node]);
+    return -0.5 * (slope - 0.75 * bend);
+}
+
+struct CellValues {
+    std::array<double, 8> value{}; ///< on the side plane where the cell lies on one
+    std::array<bool, 2> half{};    ///< half cell at a mirror side
+    std::array<bool, 2> across{};  ///< cell that reaches over a periodic side
+};
+
+CellValues cell_values(const Band& band, const DualCell& cell) {
+    CellValues out;
+    const Domain& d = band.domain;
+    const auto& c = band.cells[cell.node];
+    const bool mirror = d.sides == Sides::mirror;
+    const bool last[2] = {c.i == d.cells_x - 1, c.j == d.cells_y - 1};
+    for (int axis = 0; axis < 2; ++axis) {
+        out.half[axis] = mirror && (cell.low[axis] || last[axis]);
+        out.across[axis] = !mirror && last[axis];
+    }
+    for (int m = 0; m < 8; ++m) {
+        out.value[m] = band.phi[cell.corner[m]];
+        for (int axis = 0; axis < 2; ++axis)
+            if (out.half[axis])
+                out.value[m] += change_to_side(band, cell.corner[m], axis, cell.low[axis]);
+    }
+    for (int axis = 0; axis < 2; ++axis)
+        if (out.across[axis])
+            for (int m = 0; m < 8; ++m)
+                if (!(m >> axis & 1))
+                    out.value[m] = out.value[m | 1 << axis] =
+                        0.5 * (out.value[m] + out.value[m | 1 << axis]);
+    return out;
+}
+
+/// Whether the averaged values of a cell that reaches over a periodic side cross there.
+bool crosses_side(const CellValues& v) {
+    const bool gas = v.value[0] >= 0;
+    return std::any_of(v.value.begin(), v.value.end(), [&](double x) { return (x >= 0) != gas; });
+}
+
+/// `meet_side`: end on a periodic side where the cell reaches over it.
+CrossedCell crossings(const Band& band, const DualMesh& mesh, int vertex, bool meet_side) {
+    const DualCell& cell = mesh.cells[mesh.cell_of_vertex[vertex]];
+    const int sheet = vertex - cell.first_vertex;
+    const Domain& d = band.domain;
+    const auto& c = band.cells[cell.node];
+    CellValues v = cell_values(band, cell);
+    const bool across = v.across[0] || v.across[1];
+    const bool to_side = meet_side && across && cell.sheets == 1 && crosses_side(v);
+    const double x_max = 0.5 * d.width_x(), y_max = 0.5 * d.width_y();
+    const double side[2] = {cell.low[0] ? -x_max : x_max, cell.low[1] ? -y_max : y_max};
+
+    CrossedCell out;
+    out.low = d.node(c.i, c.j, c.k);
+    out.high = out.low + Vec3(d.spacing);
+    Vec3 box_low = out.low, box_high = out.high;
+    for (int axis = 0; axis < 2; ++axis) {
+        out.on_side[axis] = v.half[axis] || (v.across[axis] && to_side);
+        if (out.on_side[axis]) box_low[axis] = box_high[axis] = side[axis];
+        if (v.half[axis]) {
+            (cell.low[axis] ? out.high : out.low)[axis] = out.low[axis];
+            (cell.low[axis] ? out.low : out.high)[axis] = side[axis];
+        }
+    }
+    for (int axis = 0; axis < 3; ++axis)
+        for (int bits = 0; bits < 4; ++bits) {
+            const int u = (axis + 1) % 3, w = (axis + 2) % 3;
+            const int from = (bits & 1) << u | (bits >> 1) << w, to = from | 1 << axis;
+            bool skip = axis < 2 && out.on_side[axis];
+            for (int m = 0; m < 2; ++m) skip = skip || (out.on_side[m] && (from >> m & 1));
+            if (skip) continue;
+            const double real_from = band.phi[cell.corner[from]], real_to = band.phi[cell.corner[to]];
+            const double value_from = out.on_side[0] || out.on_side[1] ? v.value[from] : real_from;
+            const double value_to = out.on_side[0] || out.on_side[1] ? v.value[to] : real_to;
+            double t = 0;
+            if (to_side) {
+                if ((value_from >= 0) == (value_to >= 0)) continue;
+                t = value_from / (value_from - value_to);
+            } else {
+                if (cell.loop[edge_number(axis, from)] != sheet) continue;
+                const double real = real_from - real_to, moved = value_from - value_to;
+                // A steep surface may leave the edge on its way to the side: follow it.
+                t = moved * real > 0 && std::fabs(moved) > 0.2 * std::fabs(real)
+                        ? std::clamp(value_from / moved, -1.5, 2.5)
+                        : real_from / real;
+            }
+            CrossedEdge& e = out.edge[out.count++];
+            for (int m = 0; m < 3; ++m) {
+                e.a[m] = from >> m & 1 ? box_high[m] : box_low[m];
+                e.b[m] = to >> m & 1 ? box_high[m] : box_low[m];
+            }
+            e.crossing = e.a + (e.b - e.a) * t;
+        }
+    return out;
+}
+
+} // namespace
+
+CrossedCell crossed_cell(const Band& band, const DualMesh& mesh, int vertex) {
+    const CrossedCell to_side = crossings(band, mesh, vertex, true);
+    if (band.domain.sides == Sides::mirror || !(to_side.on_side[0] || to_side.on_side[1]))
+        return to_side;
+    // A wall along a periodic side may be far from where it meets the side: leave it where it is.
+    const CrossedCell free = crossings(band, mesh, vertex, false);
+    const double moved = (to_side.mean() - free.mean()).length();
+    return moved < 0.6 * band.domain.spacing ? to_side : free;
+}
+
+void place_vertices(const Band& band, DualMesh& mesh) {
+    const std::size_t size = mesh.cell_of_vertex.size();
+    mesh.position.resize(size);
+    over_ranges(size, 4096, [&](std::size_t first, std::size_t last) {
+        for (std::size_t n = first; n < last; ++n)
+            mesh.position[n] = crossed_cell(band, mesh, static_cast<int>(n)).mean();
+    });
+}
+
+} // namespace rille::geometry

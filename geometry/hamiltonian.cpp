@@ -1,0 +1,249 @@
+// SPDX-License-Identifier: Apache-2.0
+#include "geometry/hamiltonian.hpp"
+
+#include "geometry/check.hpp"
+
+#include <algorithm>
+#include <cmath>
+
+namespace rille::geometry {
+
+namespace {
+
+constexpr double pi = 3.14159265358979323846;
+constexpr double narrow = 0.05; ///< [rad] below it a box of slopes counts as a small cone
+
+double minmod(double a, double b) {
+    if (a * b <= 0) return 0;
+    return std::fabs(a) < std::fabs(b) ? a : b;
+}
+
+void slopes_along(const Band& band, const double* phi, std::size_t cell, double inverse_spacing,
+                  int axis, unsigned unseen, Slopes& out) {
+    const int c = static_cast<int>(cell);
+    int left = band.neighbour[c][2 * axis], right = band.neighbour[c][2 * axis + 1];
+    if (unseen >> 2 * axis & 1) left = -1;
+    if (unseen >> (2 * axis + 1) & 1) right = -1;
+    const double here = phi[c];
+    if (left < 0 || right < 0) {
+        // The edge of the band: second-order differences from the side that is there.
+        const int side = left < 0 ? 2 * axis + 1 : 2 * axis, next = band.neighbour[c][side];
+        if (next < 0) return;
+        const int next2 = band.neighbour[next][side];
+        const double near = phi[next] - here, bend = next2 < 0 ? 0 : phi[next2] - phi[next] - near;
+        const double slope = (near - 0.5 * bend) * (left < 0 ? inverse_spacing : -inverse_spacing);
+        out.minus[axis] = out.plus[axis] = slope;
+        return;
+    }
+    // Beyond a mirror side the second neighbour is the first one on the other side.
+    const int left2 = left == c ? right : band.neighbour[left][2 * axis];
+    const int right2 = right == c ? left : band.neighbour[right][2 * axis + 1];
+    const double back = here - phi[left], ahead = phi[right] - here, bend = ahead - back;
+    const double bend_left = left2 < 0 ? bend : back - (phi[left] - phi[left2]);
+    const double bend_right = right2 < 0 ? bend : (phi[right2] - phi[right]) - ahead;
+    out.minus[axis] = (back + 0.5 * minmod(bend, bend_left)) * inverse_spacing;
+    out.plus[axis] = (ahead - 0.5 * minmod(bend, bend_right)) * inverse_spacing;
+}
+
+/// The box of slopes of a cell in polar form: horizontal magnitude against z.
+struct Box {
+    double h_low, h_high; ///< signed p in 2-D, magnitude of (p, q) in 3-D
+    double z_low, z_high;
+};
+
+double least_magnitude(double a, double b) {
+    return a * b <= 0 ? 0 : std::min(std::fabs(a), std::fabs(b));
+}
+double most_magnitude(double a, double b) { return std::max(std::fabs(a), std::fabs(b)); }
+
+Box box_of(bool extruded, const Slopes& s) {
+    Box b;
+    b.z_low = std::min(s.minus[2], s.plus[2]);
+    b.z_high = std::max(s.minus[2], s.plus[2]);
+    if (extruded) {
+        b.h_low = std::min(s.minus[0], s.plus[0]);
+        b.h_high = std::max(s.minus[0], s.plus[0]);
+        return b;
+    }
+    const double x0 = least_magnitude(s.minus[0], s.plus[0]);
+    const double y0 = least_magnitude(s.minus[1], s.plus[1]);
+    const double x1 = most_magnitude(s.minus[0], s.plus[0]);
+    const double y1 = most_magnitude(s.minus[1], s.plus[1]);
+    b.h_low = std::sqrt(x0 * x0 + y0 * y0);
+    b.h_high = std::sqrt(x1 * x1 + y1 * y1);
+    return b;
+}
+
+Tilt tilt(double horizontal, double vertical) {
+    const double length = std::sqrt(horizontal * horizontal + vertical * vertical);
+    if (length == 0) return {};
+    return {std::atan2(horizontal, vertical), horizontal / length, vertical / length};
+}
+
+Tilt turned(const Tilt& t, double by) {
+    const double c = 1 - 0.5 * by * by;
+    return {t.angle + by, t.sine * c + t.cosine * by, t.cosine * c - t.sine * by};
+}
+
+WaveSpeed most(const WaveSpeed& a, const WaveSpeed& b) {
+    return {std::max(a.horizontal, b.horizontal), std::max(a.vertical, b.vertical)};
+}
+
+/// Wave speed over all tilts a box of slopes holds.
+WaveSpeed over_box(const RateTables& tables, int row, bool extruded, const Box& b) {
+    const double lowest = extruded ? -pi : 0;
+    const double h = 0.5 * (b.h_low + b.h_high), z = 0.5 * (b.z_low + b.z_high);
+    const double half = 0.5 * std::sqrt((b.h_high - b.h_low) * (b.h_high - b.h_low) +
+                                        (b.z_high - b.z_low) * (b.z_high - b.z_low));
+    const double length = std::sqrt(h * h + z * z);
+    const Tilt full_low{lowest, 0, extruded ? -1.0 : 1.0}, full_high{pi, 0, -1};
+    if (half < narrow * length) {
+        const Tilt mid = tilt(h, z);
+        const double spread = half / (length - half);
+        const Tilt low = turned(mid, -spread), high = turned(mid, spread);
+        if (low.angle >= lowest && high.angle <= pi)
+            return tables.wave_speed(row, low, high);
+    }
+    const bool holds_origin = b.h_low <= 0 && b.h_high >= 0 && b.z_low <= 0 && b.z_high >= 0;
+    if (holds_origin) return tables.wave_speed(row, full_low, full_high);
+    Tilt corner[4] = {tilt(b.h_low, b.z_low), tilt(b.h_low, b.z_high), tilt(b.h_high, b.z_low),
+                      tilt(b.h_high, b.z_high)};
+    std::sort(corner, corner + 4, [](const Tilt& a, const Tilt& c) { return a.angle < c.angle; });
+    const bool wraps = extruded && b.h_low < 0 && b.h_high > 0 && b.z_high < 0;
+    if (!wraps) return tables.wave_speed(row, corner[0], corner[3]);
+    // Facing down across +-pi: the tilts are those above the least positive and below the largest
+    // negative corner.
+    Tilt positive = full_high, negative = full_low;
+    for (const Tilt& t : corner) {
+        if (t.angle > 0 && t.angle < positive.angle) positive = t;
+        if (t.angle < 0 && t.angle > negative.angle) negative = t;
+    }
+    return most(tables.wave_speed(row, positive, full_high),
+                tables.wave_speed(row, full_low, negative));
+}
+
+} // namespace
+
+Slopes slopes_2d(const Band& band, const double* phi, std::size_t cell, double inverse_spacing,
+                 unsigned unseen) {
+    Slopes s;
+    slopes_along(band, phi, cell, inverse_spacing, 0, unseen, s);
+    slopes_along(band, phi, cell, inverse_spacing, 2, unseen, s);
+    return s;
+}
+
+Slopes slopes_3d(const Band& band, const double* phi, std::size_t cell, double inverse_spacing,
+                 unsigned unseen) {
+    Slopes s;
+    for (int axis = 0; axis < 3; ++axis) slopes_along(band, phi, cell, inverse_spacing, axis, unseen, s);
+    return s;
+}
+
+Tilt tilt_of(bool extruded, double gx, double gy, double gz) {
+    return tilt(extruded ? gx : std::sqrt(gx * gx + gy * gy), gz);
+}
+
+RateTables::RateTables(const NormalRates& rates) : rates_(rates) {
+    const std::vector<double>& angle = rates.angles;
+    const std::size_t n = angle.size(), rows = rates.material.size();
+    RILLE_CHECK(n >= 2 && rates.table.size() == rows * n, "rate tables of the wrong size");
+    for (std::size_t a = 0; a < n; ++a) {
+        sine_.push_back(std::sin(angle[a]));
+        cosine_.push_back(std::cos(angle[a]));
+        if (a + 1 < n) inverse_width_.push_back(1 / (angle[a + 1] - angle[a]));
+    }
+    const int bins = static_cast<int>(4 * n);
+    bins_per_radian_ = bins / (angle.back() - angle.front());
+    int s = 0;
+    for (int b = 0; b < bins; ++b) {
+        const double start = angle.front() + b / bins_per_radian_;
+        while (s + 2 < static_cast<int>(n) && angle[s + 1] <= start) ++s;
+        bin_.push_back(s);
+    }
+    for (std::size_t r = 0; r < rows; ++r) {
+        const double* v = values(static_cast<int>(r));
+        bool same = true;
+        double most = 0;
+        for (std::size_t a = 0; a < n; ++a) {
+            same = same && v[a] == v[0];
+            most = std::max(most, std::fabs(v[a]));
+        }
+        constant_.push_back(same);
+        largest_.push_back(most);
+    }
+}
+
+int RateTables::segment(double angle) const {
+    const int last = static_cast<int>(rates_.angles.size()) - 2;
+    const int b = static_cast<int>((angle - rates_.angles.front()) * bins_per_radian_);
+    int s = bin_[std::clamp(b, 0, static_cast<int>(bin_.size()) - 1)];
+    while (s < last && angle > rates_.angles[s + 1]) ++s;
+    while (s > 0 && angle < rates_.angles[s]) --s;
+    return s;
+}
+
+WaveSpeed RateTables::wave_speed(int row, const Tilt& low, const Tilt& high) const {
+    // H = R(t) rho with slopes (rho sin t, rho cos t): dH/d(horizontal) = R sin t + R' cos t and
+    // dH/dz = R cos t - R' sin t; between nodes they are extremal where cos t or sin t vanishes.
+    const int first = segment(low.angle), last = segment(high.angle);
+    const double* v = values(row);
+    WaveSpeed out;
+    for (int s = first; s <= last; ++s) {
+        const double slope = (v[s + 1] - v[s]) * inverse_width_[s];
+        const auto take = [&](double angle, double sine, double cosine) {
+            const double rate = v[s] + slope * (angle - rates_.angles[s]);
+            out.horizontal = std::max(out.horizontal, std::fabs(rate * sine + slope * cosine));
+            out.vertical = std::max(out.vertical, std::fabs(rate * cosine - slope * sine));
+        };
+        const double from = s == first ? low.angle : rates_.angles[s];
+        const double to = s == last ? high.angle : rates_.angles[s + 1];
+        if (s == first) take(low.angle, low.sine, low.cosine);
+        else take(from, sine_[s], cosine_[s]);
+        if (s == last) take(high.angle, high.sine, high.cosine);
+        else take(to, sine_[s + 1], cosine_[s + 1]);
+        if (from < 0 && to > 0) take(0, 0, 1);
+        if (from < 0.5 * pi && to > 0.5 * pi) take(0.5 * pi, 1, 0);
+        if (from < -0.5 * pi && to > -0.5 * pi) take(-0.5 * pi, -1, 0);
+    }
+    return out;
+}
+
+double upwind_steepness(const Slopes& s, bool recedes, double& waves) {
+    double square = 0, sum = 0;
+    for (int a = 0; a < 3; ++a) {
+        const double up = recedes ? s.plus[a] : s.minus[a];
+        const double down = recedes ? s.minus[a] : s.plus[a];
+        const double g = std::max(std::max(up, 0.0), -std::min(down, 0.0));
+        square += g * g;
+        sum += g;
+    }
+    const double length = std::sqrt(square);
+    waves = length > 0 ? sum / length : 0;
+    return length;
+}
+
+std::array<double, 3> dissipation(const RateTables& tables, int row, bool extruded,
+                                  const Slopes& s) {
+    if (row < 0) return {0, 0, 0};
+    double low[3], high[3];
+    for (int a = 0; a < 3; ++a) {
+        low[a] = least_magnitude(s.minus[a], s.plus[a]);
+        high[a] = most_magnitude(s.minus[a], s.plus[a]);
+    }
+    const auto share = [](double one, double other_square) {
+        const double square = one * one + other_square;
+        return square > 0 ? one / std::sqrt(square) : 0;
+    };
+    if (tables.constant(row)) {
+        const double rate = tables.largest(row);
+        return {rate * share(high[0], low[1] * low[1] + low[2] * low[2]),
+                rate * share(high[1], low[0] * low[0] + low[2] * low[2]),
+                rate * share(high[2], low[0] * low[0] + low[1] * low[1])};
+    }
+    const WaveSpeed w = over_box(tables, row, extruded, box_of(extruded, s));
+    if (extruded) return {w.horizontal, 0, w.vertical};
+    return {w.horizontal * share(high[0], low[1] * low[1]),
+            w.horizontal * share(high[1], low[0] * low[0]), w.vertical};
+}
+
+} // namespace rille::geometry

@@ -1,0 +1,213 @@
+// SPDX-License-Identifier: Apache-2.0
+#include "fluxes/exchange.hpp"
+#include "tests/support/shapes.hpp"
+#include "tests/support/statistics.hpp"
+
+#include <catch2/catch.hpp>
+
+#include <cmath>
+#include <fstream>
+#include <map>
+#include <sstream>
+#include <string>
+
+using namespace rille;
+using fluxes::Exchange;
+using geometry::Domain;
+using geometry::RayCaster;
+using geometry::Surface;
+
+namespace {
+
+constexpr double diameter = 20;
+
+/// Rows of a table by (AR, s_w, s_b), each a map from column to value.
+std::map<std::array<double, 3>, std::map<std::string, double>> read_table(const std::string& name) {
+    std::ifstream file(std::string(RILLE_TESTS) + "/data/" + name);
+    std::string line;
+    std::vector<std::string> header;
+    std::map<std::array<double, 3>, std::map<std::string, double>> table;
+    while (std::getline(file, line)) {
+        if (line.empty() || line[0] == '#')
+            continue;
+        std::stringstream cells(line);
+        std::string cell;
+        std::vector<std::string> words;
+        while (std::getline(cells, cell, ','))
+            words.push_back(cell);
+        if (header.empty()) {
+            header = words;
+            continue;
+        }
+        std::map<std::string, double> row;
+        for (std::size_t i = 0; i < words.size(); ++i)
+            row[header[i]] = std::stod(words[i]);
+        table[{row["AR"], row["s_w"], row["s_b"]}] = row;
+    }
+    return table;
+}
+
+/// A closed feature with its table.
+struct Feature {
+    Domain domain;
+    Surface surface;
+    double depth = 0;
+};
+
+Feature trench(double aspect) {
+    Feature f;
+    f.domain.cells_x = 30;
+    f.depth = aspect * diameter;
+    f.surface = tests::trench(f.domain, diameter, f.depth, 1);
+    return f;
+}
+
+/// A polygon of the same area stands for the circle.
+Feature hole(double aspect) {
+    Feature f;
+    f.domain.symmetry = geometry::Symmetry::full;
+    f.domain.cells_x = f.domain.cells_y = 30;
+    f.depth = aspect * diameter;
+    constexpr int around = 32;
+    const double step = 2 * std::acos(-1.0) / around;
+    const double r = 0.5 * diameter * std::sqrt(step / std::sin(step));
+    std::vector<std::array<double, 2>> profile;
+    const int rings = int(aspect * 10);
+    for (int i = 0; i <= rings; ++i)
+        profile.push_back({r, -f.depth * i / rings});
+    for (const double share : {0.8, 0.6, 0.4, 0.2, 0.0})
+        profile.push_back({r * share, -f.depth});
+    f.surface = tests::revolved_hole(f.domain, profile, around);
+    return f;
+}
+
+bool on_floor(const Feature& f, int e) {
+    return f.surface.centre[e].z < -f.depth + 1e-6;
+}
+bool on_wall(const Feature& f, int e) {
+    return f.surface.centre[e].z < -1e-6 && !on_floor(f, e);
+}
+
+/// What the table calls bottom_avg, H_wall_mean and H_<fraction> of the depth.
+std::map<std::string, double> summary(const Feature& f, const std::vector<double>& flux) {
+    std::map<double, std::pair<double, double>> rings; // depth -> flux x area, area
+    double floor = 0, floor_area = 0, wall = 0, wall_area = 0;
+    for (int e = 0; e < int(flux.size()); ++e) {
+        const double a = f.surface.area[e];
+        if (on_floor(f, e))
+            floor += a * flux[e], floor_area += a;
+        if (!on_wall(f, e))
+            continue;
+        wall += a * flux[e], wall_area += a;
+        auto& ring = rings[std::round(-f.surface.centre[e].z * 1e6) / 1e6];
+        ring.first += a * flux[e], ring.second += a;
+    }
+    std::map<std::string, double> out{{"bottom_avg", floor / floor_area},
+                                      {"H_wall_mean", wall / wall_area}};
+    for (const char* name : {"0.10", "0.25", "0.50", "0.75", "0.90"}) {
+        const double z = std::stod(name) * f.depth;
+        const auto above = rings.lower_bound(z), below = std::prev(above);
+        const double t = (z - below->first) / (above->first - below->first);
+        out[std::string("H_") + name] = (1 - t) * below->second.first / below->second.second +
+                                        t * above->second.first / above->second.second;
+    }
+    return out;
+}
+
+struct Comparison {
+    std::vector<double> pulls;
+    double largest_error = 0; ///< standard error over value
+    double largest_deviation = 0;
+};
+
+/// Pulls of the named quantities against the table; `fault` scales the computed values. Means over
+/// n scrambles have Student pulls: scaled to unit variance by sqrt((n - 3) / (n - 1)).
+void compare(const Feature& f, const std::map<std::string, double>& row,
+             const std::vector<std::string>& names, int scrambles, double fault, Comparison& out) {
+    const RayCaster caster(f.domain, f.surface, 1.0);
+    std::vector<double> sticking(f.surface.size(), 0);
+    for (int e = 0; e < int(sticking.size()); ++e)
+        sticking[e] = on_floor(f, e) ? row.at("s_b") : on_wall(f, e) ? row.at("s_w") : 0;
+    std::map<std::string, std::vector<double>> values;
+    for (int r = 0; r < scrambles; ++r) {
+        const auto seed = std::uint64_t(7919 + 1e6 * row.at("AR") + 1e5 * row.at("s_w") +
+                                        100 * row.at("s_b")); // every row its own streams
+        const Exchange x(f.domain, f.surface, caster, {64, seed, std::uint64_t(r)});
+        const auto all = summary(f, x.solve(sticking, -1, {}));
+        for (const std::string& name : names)
+            values[name].push_back(fault * all.at(name));
+    }
+    for (const auto& [key, value] : values) {
+        const tests::Mean mean(value);
+        const double exact = row.at(key), unit = std::sqrt((scrambles - 3.0) / (scrambles - 1));
+        out.pulls.push_back(unit * (mean.value - exact) / mean.error);
+        out.largest_error = std::max(out.largest_error, mean.error / exact);
+        out.largest_deviation = std::max(out.largest_deviation, std::fabs(mean.value / exact - 1));
+    }
+}
+
+/// Quantities of one run hang together, so each run is asked for one place (trench) or two far
+/// apart (hole) only, in turn.
+template <typename Shape>
+Comparison compare_all(Shape shape, const std::string& table, const std::vector<double>& aspects,
+                       const std::vector<std::array<double, 2>>& stickings, int scrambles,
+                       double fault = 1) {
+    const bool two = table == "closed_cylinder.csv";
+    const std::vector<std::vector<std::string>> places =
+        two ? std::vector<std::vector<std::string>>{{"H_0.10", "bottom_avg"},
+                                                    {"H_0.10", "H_0.90"},
+                                                    {"H_0.25", "bottom_avg"}}
+            : std::vector<std::vector<std::string>>{{"bottom_avg"}, {"H_0.10"}, {"H_0.50"},
+                                                    {"bottom_avg"}, {"H_0.90"}, {"H_wall_mean"}};
+    const auto rows = read_table(table);
+    Comparison out;
+    int turn = 0;
+    for (const double aspect : aspects) {
+        const Feature f = shape(aspect);
+        for (const auto& s : stickings)
+            compare(f, rows.at({aspect, s[0], s[1]}), places[turn++ % places.size()], scrambles,
+                    fault, out);
+    }
+    return out;
+}
+
+const std::vector<std::array<double, 2>> stickings{
+    {0, 0.1},    {0, 1},     {0.001, 0.1}, {0.001, 1}, {0.01, 0.01}, {0.01, 0.1}, {0.01, 1},
+    {0.1, 0.01}, {0.1, 0.1}, {0.1, 0.5},   {0.1, 1},   {0.5, 0.1},   {0.5, 1}};
+
+void check(const Comparison& c) {
+    const tests::Pulls pulls(c.pulls);
+    INFO("bins " << pulls.count << " chi2/nu " << pulls.chi2_per_bin << " largest pull "
+                 << pulls.largest << " mean pull " << pulls.mean << " largest error "
+                 << c.largest_error << " largest deviation " << c.largest_deviation);
+    CHECK(pulls.agree());
+    CHECK(c.largest_error < 0.01);
+}
+
+} // namespace
+
+TEST_CASE("neutrals in a closed trench", "[neutrals]") {
+    // Oracle: impinging flux on floor and walls of a closed trench, table closed_trench.csv.
+    // Source: computed (integral equation, 1e-8).
+    // Tolerance: 52 independent bins, chi2/nu within 1 +- 4 sqrt(2/nu), largest pull < 4.5, mean
+    // pull < 4/sqrt(n); standard errors < 1 %; values 2 % high must fail.
+    check(compare_all(trench, "closed_trench.csv", {1, 2, 5, 10}, stickings, 32));
+    const auto off = compare_all(trench, "closed_trench.csv", {1, 2}, stickings, 16, 1.02);
+    CHECK_FALSE(tests::Pulls(off.pulls).agree());
+}
+
+TEST_CASE("neutrals in a closed round hole", "[neutrals]") {
+    // Oracle: impinging flux on floor and walls of a closed hole, table closed_cylinder.csv.
+    // Source: computed (integral equation, 1e-8).
+    // Tolerance: as for the trench; 32 quads around, the polygon has the circle's area.
+    check(compare_all(hole, "closed_cylinder.csv", {1, 2}, stickings, 16));
+    const auto off = compare_all(hole, "closed_cylinder.csv", {1}, stickings, 8, 1.02);
+    CHECK_FALSE(tests::Pulls(off.pulls).agree());
+}
+
+TEST_CASE("neutrals in deep closed holes", "[neutrals][long]") {
+    // Oracle: impinging flux on floor and walls of a closed hole, table closed_cylinder.csv.
+    // Source: computed (integral equation, 1e-8).
+    // Tolerance: as above.
+    check(compare_all(hole, "closed_cylinder.csv", {1, 2, 5, 10}, stickings, 32));
+}
