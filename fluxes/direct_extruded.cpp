@@ -17,7 +17,7 @@ namespace {
 constexpr std::array<double, 2> gauss = {0.21132486540518712, 0.7886751345948129};
 
 class ExtrudedGather {
-  public:
+public:
     ExtrudedGather(const geometry::Domain& domain, const geometry::Surface& surface,
                    const IonTables& tables)
         : surface_(surface), tables_(tables), sky_(domain, surface),
@@ -29,7 +29,8 @@ class ExtrudedGather {
         gathered_.flux.assign(ions, std::vector<double>(count, 0.0));
         over_elements([&](int e) {
             for (double part : gauss)
-                for (const Visible& v : sky_.visible(e, part)) seen_[e].push_back(v);
+                for (const Visible& v : sky_.visible(e, part))
+                    seen_[e].push_back(v);
             for (std::size_t s = 0; s < ions; ++s)
                 gathered_.flux[s][e] =
                     tables_.ions()[s].flux * sky_.flux(tables_.in_plane(static_cast<int>(s)), e);
@@ -43,15 +44,18 @@ class ExtrudedGather {
             });
             own_flux_.push_back(std::move(own));
         }
-        for (std::size_t m = 0; m < tables_.tallies().size(); ++m) tabulate(static_cast<int>(m));
+        for (std::size_t m = 0; m < tables_.tallies().size(); ++m)
+            tabulate(static_cast<int>(m));
         return std::move(gathered_);
     }
 
-  private:
-    template <class Work> void over_elements(const Work& work) const {
+private:
+    template <class Work>
+    void over_elements(const Work& work) const {
         tbb::parallel_for(tbb::blocked_range<int>(0, static_cast<int>(surface_.size()), 64),
                           [&](const tbb::blocked_range<int>& range) {
-                              for (int e = range.begin(); e != range.end(); ++e) work(e);
+                              for (int e = range.begin(); e != range.end(); ++e)
+                                  work(e);
                           });
     }
 
@@ -74,9 +78,11 @@ class ExtrudedGather {
             for (int i = average_.first[e]; i < average_.first[e + 1]; ++i) {
                 const double* part = &raw[average_.parts[i].element * angles];
                 const double weight = average_.parts[i].weight;
-                for (std::size_t k = 0; k < angles; ++k) row[k] += weight * std::max(0.0, part[k]);
+                for (std::size_t k = 0; k < angles; ++k)
+                    row[k] += weight * std::max(0.0, part[k]);
             }
-            for (std::size_t k = 0; k < angles; ++k) rows[e * angles + k] = static_cast<float>(row[k]);
+            for (std::size_t k = 0; k < angles; ++k)
+                rows[e * angles + k] = static_cast<float>(row[k]);
         });
         return rows;
     }

@@ -2,6 +2,7 @@
 #pragma once
 
 #include "fluxes/exchange.hpp"
+#include "fluxes/ion_tables.hpp"
 #include "fluxes/ions.hpp"
 #include "fluxes/mechanism.hpp"
 #include "geometry/domain.hpp"
@@ -10,6 +11,7 @@
 #include "geometry/surface.hpp"
 
 #include <cstdint>
+#include <memory>
 #include <vector>
 
 namespace rille::fluxes {
@@ -43,6 +45,8 @@ struct SurfaceStep {
     /// rate_batch[b][e]: the rate had only batch b been used; their spread is the sampling error.
     std::vector<std::vector<double>> rate_batch;
     std::vector<int> growth_material; ///< film material that grows on the element, or -1
+    /// Ion tables of the plasma state: the next step with the same ions takes them from here.
+    std::shared_ptr<const IonTables> ion_tables;
     int iterations = 0;               ///< of transport and kinetics against each other
     double residual = 0;              ///< largest change of a sticking probability in the last one
 };

@@ -31,8 +31,10 @@ Domain square(double width) {
 /// Round hole of radius 10 and the given depth: rings on the wall and on the floor.
 Surface hole(const Domain& d, double depth, int around) {
     std::vector<std::array<double, 2>> profile = {{10, 0}};
-    for (int i = 1; i <= 8; ++i) profile.push_back({10, -depth * i / 8});
-    for (double r : {9.0, 7.5, 5.0, 2.5}) profile.push_back({r, -depth});
+    for (int i = 1; i <= 8; ++i)
+        profile.push_back({10, -depth * i / 8});
+    for (double r : {9.0, 7.5, 5.0, 2.5})
+        profile.push_back({r, -depth});
     profile.push_back({0, -depth});
     return tests::revolved_hole(d, profile, around);
 }
@@ -54,7 +56,8 @@ Estimate average(const DirectIons& ions, const Surface& s, Where where) {
         values[b] = sum / area;
         mean += values[b] / 8;
     }
-    for (double v : values) square += (v - mean) * (v - mean);
+    for (double v : values)
+        square += (v - mean) * (v - mean);
     return {mean, std::sqrt(square / 56)};
 }
 
@@ -63,10 +66,12 @@ Estimate average(const DirectIons& ions, const Surface& s, Where where) {
 TEST_CASE("direct ions, full: floor of a round hole", "[direct][full]") {
     // Oracle: average over the floor, cosine law and Gaussian ions.
     // Source: closed forms (view factor of coaxial disks; Bessel functions), computed tables.
-    // Tolerance: 4 standard errors, those < 0.5 %, plus 0.3 % for a bore of 48 flat sides; a fault of
+    // Tolerance: 4 standard errors, those < 0.5 %, plus 0.3 % for a bore of 48 flat sides; a fault
+    // of
     //            3 % must fail.
     const Domain d = square(30);
-    const auto check = [&](const IonDistribution& law, double aspect, double expected, int directions) {
+    const auto check = [&](const IonDistribution& law, double aspect, double expected,
+                           int directions) {
         const double depth = 20 * aspect;
         const Surface s = hole(d, depth, 48);
         const RayCaster caster(d, s, 5);
@@ -81,13 +86,15 @@ TEST_CASE("direct ions, full: floor of a round hole", "[direct][full]") {
     };
     check(IonDistribution::thermal_fall(0, 1, 1), 1, 0.1715729, 1024);
     for (auto& row : tests::csv_table("direct_flux_gaussian.csv"))
-        if ((row["AR"] == 10 || row["AR"] == 20) && (row["sigma_deg"] == 1 || row["sigma_deg"] == 2))
+        if ((row["AR"] == 10 || row["AR"] == 20) &&
+            (row["sigma_deg"] == 1 || row["sigma_deg"] == 2))
             check(IonDistribution::gaussian(100, row["sigma_deg"] * degree), row["AR"],
                   row["cyl_avg"], 1024);
 }
 
 TEST_CASE("direct ions, full: open plane, turned normals and batches", "[direct][full]") {
-    // Oracle: flux 1 through an open flat surface; cos(angle) under a vertical beam at a turned normal;
+    // Oracle: flux 1 through an open flat surface; cos(angle) under a vertical beam at a turned
+    // normal;
     //         mean of the batches = tally.
     // Source: definition.
     // Tolerance: 1e-12 for the beam at table angles (float 1e-6), 1e-12 for batches.
@@ -96,7 +103,8 @@ TEST_CASE("direct ions, full: open plane, turned normals and batches", "[direct]
     const RayCaster caster(d, s, 5);
     DirectIons::Options options;
     options.directions = 64;
-    const DirectIons beam(d, s, caster, {{"X+", 40, 2.5, IonDistribution::beam(100, Vec3(0, 0, -1))}},
+    const DirectIons beam(d, s, caster,
+                          {{"X+", 40, 2.5, IonDistribution::beam(100, Vec3(0, 0, -1))}},
                           {{0, per_ion}}, options);
     const auto angles = beam.rate_angles();
     CHECK(angles.size() <= 64);
@@ -111,7 +119,8 @@ TEST_CASE("direct ions, full: open plane, turned normals and batches", "[direct]
     const DirectIons spread(d, s, caster, {{"X+", 40, 1, IonDistribution::gaussian(100, 0.1)}},
                             {{0, per_ion}}, options);
     double mean = 0;
-    for (int b = 0; b < 8; ++b) mean += spread.tally_batch(b, 0, 5) / 8;
+    for (int b = 0; b < 8; ++b)
+        mean += spread.tally_batch(b, 0, 5) / 8;
     CHECK(mean == Approx(spread.tally(0, 5)).epsilon(1e-12));
     CHECK(spread.tally(0, 5) == Approx(1).epsilon(0.01));
 }
@@ -126,7 +135,8 @@ TEST_CASE("direct ions, full: same bits for any number of threads", "[direct][fu
         DirectIons::Options options;
         options.directions = 32;
         options.refresh = refresh;
-        const DirectIons ions(d, s, caster, {{"X+", 40, 1.0, IonDistribution::thermal_fall(100, 0.3, 0.3)}},
+        const DirectIons ions(d, s, caster,
+                              {{"X+", 40, 1.0, IonDistribution::thermal_fall(100, 0.3, 0.3)}},
                               {{0, per_ion}}, options);
         std::vector<double> all;
         for (std::size_t e = 0; e < s.size(); ++e) {

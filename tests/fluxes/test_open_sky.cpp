@@ -24,7 +24,8 @@ void add_loop(Surface& s, const std::vector<Vec3>& points, int chain) {
     const int first = static_cast<int>(s.size());
     const int n = static_cast<int>(points.size());
     const int base = static_cast<int>(s.vertices.size());
-    for (const Vec3& p : points) s.vertices.push_back(p);
+    for (const Vec3& p : points)
+        s.vertices.push_back(p);
     for (int i = 0; i < n; ++i) {
         tests::add_element(s, {base + i, base + (i + 1) % n, -1, -1});
         s.chain.back() = chain;
@@ -70,7 +71,8 @@ TEST_CASE("open sky: closed voids are dark and do not matter", "[direct]") {
     CHECK_FALSE(b.floating_pieces());
     const InPlane plane = resolve_in_plane(GaussianSlopes{100, 0.2});
     for (std::size_t e = 0; e < with_void.size(); ++e) {
-        if (e < open.size()) CHECK(b.flux(plane, int(e)) == a.flux(plane, int(e)));
+        if (e < open.size())
+            CHECK(b.flux(plane, int(e)) == a.flux(plane, int(e)));
         if (e >= open.size()) {
             CHECK(b.flux(plane, int(e)) == 0);
             CHECK(b.visible(int(e), 0.5).empty());
@@ -79,9 +81,9 @@ TEST_CASE("open sky: closed voids are dark and do not matter", "[direct]") {
 }
 
 TEST_CASE("open sky: floating pieces cast shadows", "[direct]") {
-    // Oracle: plain search of all segments for beams; total flux = incident for a broad distribution.
-    // Source: independent code; conservation.
-    // Tolerance: one part in eight of an element at a shadow edge (its flux is taken at eight points);
+    // Oracle: plain search of all segments for beams; total flux = incident for a broad
+    // distribution. Source: independent code; conservation. Tolerance: one part in eight of an
+    // element at a shadow edge (its flux is taken at eight points);
     //            1 % of the total; without the shadow the total must be off.
     const Domain d = period(GENERATE(Sides::mirror, Sides::periodic));
     Surface s = tests::trench(d, 50, 60, 2.0);
@@ -105,7 +107,8 @@ TEST_CASE("open sky: floating pieces cast shadows", "[direct]") {
     for (std::size_t e = 0; e < s.size(); ++e) {
         const double part = sky.flux(broad, int(e)) * s.area[e];
         all += part;
-        if (e < fixed) without += part;
+        if (e < fixed)
+            without += part;
     }
     CHECK(all == Approx(80).epsilon(0.01));
     CHECK(without < 0.95 * 80);
@@ -117,7 +120,7 @@ TEST_CASE("open sky: a period may start anywhere", "[direct]") {
     // Tolerance: 1e-12.
     const Domain d = period(Sides::periodic);
     const InPlane plane = resolve_in_plane(GaussianSlopes{100, 0.5});
-    const std::vector<Vec3> shape = {{-40, 0, -7}, {-20, 0, 0},   {-24, 0, -30}, {0, 0, -40},
+    const std::vector<Vec3> shape = {{-40, 0, -7}, {-20, 0, 0},  {-24, 0, -30}, {0, 0, -40},
                                      {10, 0, -12}, {15, 0, -15}, {40, 0, -7}};
     const std::vector<Vec3> moved = {{-40, 0, -40}, {-30, 0, -12}, {-25, 0, -15}, {0, 0, -7},
                                      {20, 0, 0},    {16, 0, -30},  {40, 0, -40}};
@@ -127,7 +130,8 @@ TEST_CASE("open sky: a period may start anywhere", "[direct]") {
     for (std::size_t e = 0; e < a.size(); ++e)
         for (std::size_t f = 0; f < b.size(); ++f) {
             const double x = std::remainder(b.centre[f].x - a.centre[e].x - 40, 80);
-            if (std::fabs(x) > 1e-9 || std::fabs(b.centre[f].z - a.centre[e].z) > 1e-9) continue;
+            if (std::fabs(x) > 1e-9 || std::fabs(b.centre[f].z - a.centre[e].z) > 1e-9)
+                continue;
             CHECK(std::fabs(sky_a.flux(plane, int(e)) - sky_b.flux(plane, int(f))) < 1e-12);
         }
 }
