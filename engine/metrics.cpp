@@ -208,8 +208,9 @@ private:
             const bool holds_floor =
                 floor_->deepest.value < film.top && floor_->deepest.value >= film.bottom;
             const bool wanted =
-                std::any_of(c_.targets.begin(), c_.targets.end(),
-                            [&](const Target& target) { return target.metric == name; });
+                std::any_of(c_.targets.begin(), c_.targets.end(), [&](const Target& target) {
+                    return target.metric == name || target.metric.rfind(name + " of ", 0) == 0;
+                });
             if (!holds_floor && !wanted)
                 continue;
             Measured loss = shifted(scaled(-1, floor_->deepest), film.top);

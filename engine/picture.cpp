@@ -119,10 +119,15 @@ double draw_targets(Svg& svg, const PictureContext& p, double x, double y) {
         const bool several = p.c.mask.openings.size() > 1 && !v.feature.empty();
         svg.text(x, at, several ? v.feature + ": " + v.target : v.target,
                  {11.5, Anchor::start, false, "#222222", false, 0});
-        std::string verdict = verdict_name(v.verdict);
-        if (v.by_numbers != v.verdict) // the parameters keep it open
-            verdict += std::string(" (") + verdict_name(v.by_numbers) + " by the numbers)";
-        svg.text(x + panel_width, at, verdict, {11.5, Anchor::end, true, "#222222", false, 0});
+        svg.text(x + panel_width, at, verdict_name(v.verdict),
+                 {11.5, Anchor::end, true, "#222222", false, 0});
+        if (v.by_numbers != v.verdict) { // the parameters keep it open
+            at += 14;
+            svg.text(x + panel_width, at,
+                     std::string(verdict_name(v.by_numbers)) +
+                         " by the numbers; parameters illustrative or from memory",
+                     {10, Anchor::end, false, "#555555", false, 0});
+        }
         at += 17;
     }
     return at - y;

@@ -221,7 +221,7 @@ void draw_time_labels(Svg& svg, const View& v, const PictureContext& p, double a
         if (!z)
             continue;
         const std::string text = time_text(p.fronts[f].time_s);
-        const TextStyle style{10, Anchor::middle, false, front_colour(f, p.fronts.size()), true, 0};
+        const TextStyle style{10, Anchor::middle, false, "#1b3266", true, 0};
         double left = 0, right = 0;
         if (!walls_at(p.profile, *z, axis, left, right) ||
             (right - left) * v.scale_x < text_width(text, style) + 8)

@@ -13,11 +13,30 @@ namespace {
 constexpr double seconds_per_minute = 60;
 constexpr double degrees = 180 / 3.14159265358979323846;
 
-double element_error(const SurfaceState& state, std::size_t element) {
-    std::vector<double> deviation;
+/// Standard error of a mean from the deviations of its batches: SE^2 = sum w_b^2 / (B (B - 1)).
+double standard_error(double sum_of_squares, double batches) {
+    return std::sqrt(sum_of_squares / (batches * (batches - 1)));
+}
+
+/// Half-width of the 95 % interval in standard errors.
+double student_factor(double batches) {
+    const boost::math::students_t_distribution<double> student(batches - 1);
+    return boost::math::quantile(student, 0.975);
+}
+
+/// 95 % sampling error of every element's position; empty where nothing is sampled.
+std::vector<double> element_errors(const SurfaceState& state) {
+    const auto batches = static_cast<double>(state.displacement.size());
+    if (batches < 2)
+        return {};
+    const double factor = student_factor(batches);
+    std::vector<double> errors(state.surface.size(), 0.0);
     for (const auto& batch : state.displacement)
-        deviation.push_back(batch[element]);
-    return sampling_error(deviation);
+        for (std::size_t e = 0; e < errors.size(); ++e)
+            errors[e] += batch[e] * batch[e];
+    for (double& error : errors)
+        error = factor * standard_error(error, batches);
+    return errors;
 }
 
 std::string name_at(const std::vector<std::string>& names, const std::vector<int>& index,
@@ -71,8 +90,7 @@ double sampling_error(const std::vector<double>& batch_deviation) {
     double sum = 0;
     for (const double w : batch_deviation)
         sum += w * w;
-    const boost::math::students_t_distribution<double> student(batches - 1);
-    return boost::math::quantile(student, 0.975) * std::sqrt(sum / (batches * (batches - 1)));
+    return student_factor(batches) * standard_error(sum, batches);
 }
 
 std::vector<double> arc_length(const geometry::Surface& s) {
@@ -94,6 +112,7 @@ std::string profile_csv(const Case& c, const SurfaceState& state) {
         films.push_back(film.name);
     const std::vector<double> arc =
         c.domain.extruded() ? arc_length(state.surface) : std::vector<double>();
+    const std::vector<double> errors = element_errors(state);
     std::string text = header(c, state);
     for (std::size_t e = 0; e < state.surface.size(); ++e) {
         text += place(c, state, arc, e);
@@ -104,8 +123,8 @@ std::string profile_csv(const Case& c, const SurfaceState& state) {
         if (!state.rate.empty())
             text += shortest(state.rate[e] * seconds_per_minute);
         text += ",";
-        if (!state.displacement.empty())
-            text += shortest(element_error(state, e));
+        if (!errors.empty())
+            text += shortest(errors[e]);
         for (const NamedField& field : state.fields)
             text += "," + shortest(field.value[e]);
         text += "\n";

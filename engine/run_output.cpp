@@ -25,6 +25,10 @@ RunOutput::RunOutput(OutputFolder& folder, const Case& c) : folder_(folder), cas
 }
 
 void RunOutput::add_frame(const SurfaceState& state) {
+    if (!series_.empty() && state.time_s <= series_.back().time_s) {
+        series_.pop_back(); // a later view of the same instant replaces the earlier one
+        fronts_.pop_back();
+    }
     const std::string file =
         fmt::format("{}/frame_{:04}.vtp", output_names::frames, series_.size());
     folder_.write(file, vtp_text(case_, state));
@@ -50,7 +54,10 @@ Metrics RunOutput::finish(const RunResult& result) {
     files.insert(std::upper_bound(files.begin(), files.end(), output_names::record),
                  output_names::record);
     files.erase(std::unique(files.begin(), files.end()), files.end());
-    folder_.write(output_names::record, json_text(record_json(case_, result.record, files)));
+    RunRecord record = result.record;
+    if (record.peak_memory_bytes == 0)
+        record.peak_memory_bytes = peak_memory_bytes();
+    folder_.write(output_names::record, json_text(record_json(case_, record, files)));
     return metrics;
 }
 

@@ -18,7 +18,8 @@ public:
     /// Writes the resolved case at once. Both arguments must outlive this object.
     RunOutput(OutputFolder&, const Case&);
 
-    /// Writes one frame and renews the series file. Times must increase; the first is the start.
+    /// Writes one frame and renews the series file. Times must not fall; the first is the start. A
+    /// frame at the time of the one before replaces it.
     void add_frame(const SurfaceState&);
     /// Writes history, profile, metrics, level set, picture and record; adds `result.last` as a
     /// frame if it is later than the last one. Returns the metrics. May be called again.
