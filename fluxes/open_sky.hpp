@@ -28,7 +28,7 @@ struct Visible {
 /// Pieces of solid that float in the gas break that picture; then the sky is found per point by
 /// taking away the interval that each segment hides (slower, exact per point).
 class OpenSky {
-  public:
+public:
     OpenSky(const geometry::Domain&, const geometry::Surface&);
 
     /// Flux through element e per length, relative to the flux through the wafer plane, of an
@@ -36,13 +36,13 @@ class OpenSky {
     /// length is the period, to round-off (with floating pieces: to the quadrature along segments).
     double flux(const InPlane&, int element) const;
 
-    /// Intervals seen from the point at `part` in [0, 1] of element e. What the element itself hides
-    /// is left out: it depends on the normal, which the caller may turn.
+    /// Intervals seen from the point at `part` in [0, 1] of element e. What the element itself
+    /// hides is left out: it depends on the normal, which the caller may turn.
     std::vector<Visible> visible(int element, double part) const;
 
     bool floating_pieces() const { return !floating_.empty(); }
 
-  private:
+private:
     struct Point {
         double x = 0, z = 0;
     };
@@ -72,10 +72,10 @@ class OpenSky {
     double flux_by_points(const InPlane&, int element) const;
     std::vector<Visible> visible_by_segments(int element, double part) const;
 
-    std::vector<Point> point_;     ///< unrolled over one period (mirror: two) from the highest
-    std::vector<double> normal_;   ///< per unrolled segment, unwrapped [rad]
-    std::vector<int> position_;    ///< element -> unrolled segment, or -1
-    Strings left_, right_;         ///< right_: of the surface reflected in x and reversed
+    std::vector<Point> point_;   ///< unrolled over one period (mirror: two) from the highest
+    std::vector<double> normal_; ///< per unrolled segment, unwrapped [rad]
+    std::vector<int> position_;  ///< element -> unrolled segment, or -1
+    Strings left_, right_;       ///< right_: of the surface reflected in x and reversed
     std::vector<Point> reflected_;
     std::vector<double> length_;   ///< per element
     std::vector<Segment> segment_; ///< per element, for floating pieces

@@ -32,7 +32,7 @@ struct Chunk {
 };
 
 class Tracer {
-  public:
+public:
     Tracer(const geometry::Domain& domain, const geometry::Surface& surface,
            const geometry::RayCaster& caster, const std::vector<int>& material,
            const std::vector<IonSource>& ions, const std::vector<Tally>& tallies,
@@ -45,26 +45,29 @@ class Tracer {
     ReflectedIons run() {
         std::vector<Chunk> chunks = plan();
         tbb::parallel_for(std::size_t(0), chunks.size(), [&](std::size_t c) {
-            for (int i = 0; i < chunks[c].count; ++i) follow(chunks[c], chunks[c].first + i);
+            for (int i = 0; i < chunks[c].count; ++i)
+                follow(chunks[c], chunks[c].first + i);
         });
         ReflectedIons result;
-        result.value.assign(batches,
-                            std::vector<double>(tallies_.size() * surface_.size(), 0.0));
+        result.value.assign(batches, std::vector<double>(tallies_.size() * surface_.size(), 0.0));
         double lost = 0, incident = 0;
-        for (const IonSource& ion : ions_) incident += ion.flux;
+        for (const IonSource& ion : ions_)
+            incident += ion.flux;
         for (const Chunk& chunk : chunks) {
-            for (const Deposit& d : chunk.deposits) result.value[chunk.batch][d.slot] += d.value;
+            for (const Deposit& d : chunk.deposits)
+                result.value[chunk.batch][d.slot] += d.value;
             lost += chunk.lost * ions_[chunk.ion].flux / (double(per_batch_) * batches);
         }
         result.lost_share = incident > 0 ? lost / incident : 0.0;
         return result;
     }
 
-  private:
+private:
     std::vector<Chunk> plan() const {
         std::vector<Chunk> chunks;
         for (int s = 0; s < static_cast<int>(ions_.size()); ++s) {
-            if (!(ions_[s].flux > 0) || options_.ions_per_species <= 0) continue;
+            if (!(ions_[s].flux > 0) || options_.ions_per_species <= 0)
+                continue;
             for (int b = 0; b < batches; ++b)
                 for (int first = 0; first < per_batch_; first += chunk_ions) {
                     chunks.emplace_back();
@@ -80,11 +83,12 @@ class Tracer {
 
     /// One ion from the source plane until it stays, leaves, or cannot do anything any more.
     void follow(Chunk& chunk, int index) const {
-        const std::uint64_t batch_key = stream_key(options_.seed, stream, options_.refresh,
-                                                   chunk.ion, chunk.batch);
+        const std::uint64_t batch_key =
+            stream_key(options_.seed, stream, options_.refresh, chunk.ion, chunk.batch);
         const ScrambledPoints points(batch_key);
         const auto i = static_cast<std::uint32_t>(index);
-        // In extruded the place of launch and the polar angle, in full the place, is the first pair.
+        // In extruded the place of launch and the polar angle, in full the place, is the first
+        // pair.
         const auto p0 = points.pair(i, 0), p1 = points.pair(i, 1), p2 = points.pair(i, 2);
         const bool flat = domain_.extruded();
         const Vec3 start(domain_.x_min() + domain_.width_x() * p0[0],
@@ -97,22 +101,26 @@ class Tracer {
         double weight = 1, energy = ion.energy_ev;
         Hit hit = caster_.trace(start, ion.direction, -1);
         for (int hits = 0;; ++hits) {
-            if (hit.kind == Hit::Kind::lost || hits == longest_path) chunk.lost += weight;
-            if (hit.kind != Hit::Kind::surface || hits == longest_path) return;
+            if (hit.kind == Hit::Kind::lost || hits == longest_path)
+                chunk.lost += weight;
+            if (hit.kind != Hit::Kind::surface || hits == longest_path)
+                return;
             const Vec3 mean = normal_[hit.element];
             const double cosine = std::clamp(-hit.direction.dot(mean), 0.0, 1.0);
-            if (hits > 0) deposit(chunk, hit.element, weight, energy, cosine);
+            if (hits > 0)
+                deposit(chunk, hit.element, weight, energy, cosine);
             const IonReflection& law = reflection_[material_[hit.element]];
             weight *= reflection_probability(law, cosine);
             energy *= energy_kept(law, ions_[chunk.ion].mass_amu, cosine);
-            if (!(weight > 0) || !can_act(chunk.ion, energy)) return;
+            if (!(weight > 0) || !can_act(chunk.ion, energy))
+                return;
             if (weight < roulette_below) {
-                if (unit_interval(stream_key(key, hits, 7)) * roulette_below >= weight) return;
+                if (unit_interval(stream_key(key, hits, 7)) * roulette_below >= weight)
+                    return;
                 weight = roulette_below;
             }
-            const Vec3 out = reflected_direction(law, hit.direction, mean,
-                                                 surface_.normal[hit.element],
-                                                 stream_key(key, hits, 11));
+            const Vec3 out = reflected_direction(
+                law, hit.direction, mean, surface_.normal[hit.element], stream_key(key, hits, 11));
             hit = caster_.trace(hit.point, out, hit.element);
         }
     }
@@ -129,9 +137,11 @@ class Tracer {
         const double flux =
             weight * ions_[chunk.ion].flux * base / (per_batch_ * surface_.area[element]);
         for (std::size_t m = 0; m < tallies_.size(); ++m) {
-            if (tallies_[m].ion != chunk.ion) continue;
+            if (tallies_[m].ion != chunk.ion)
+                continue;
             const double value = flux * tallies_[m].yield(energy, cosine);
-            if (value != 0) chunk.deposits.push_back({m * surface_.size() + element, value});
+            if (value != 0)
+                chunk.deposits.push_back({m * surface_.size() + element, value});
         }
     }
 
@@ -151,8 +161,7 @@ class Tracer {
 
 ReflectedIons trace_reflected(const geometry::Domain& domain, const geometry::Surface& surface,
                               const geometry::RayCaster& caster, const std::vector<int>& material,
-                              const std::vector<IonSource>& ions,
-                              const std::vector<Tally>& tallies,
+                              const std::vector<IonSource>& ions, const std::vector<Tally>& tallies,
                               const std::vector<IonReflection>& reflection,
                               const ReflectionOptions& options) {
     return Tracer(domain, surface, caster, material, ions, tallies, reflection, options).run();

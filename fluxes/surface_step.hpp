@@ -2,6 +2,7 @@
 #pragma once
 
 #include "fluxes/exchange.hpp"
+#include "fluxes/ion_tables.hpp"
 #include "fluxes/ions.hpp"
 #include "fluxes/mechanism.hpp"
 #include "geometry/domain.hpp"
@@ -22,9 +23,6 @@ struct Sources {
     std::vector<IonSource> ions;         ///< in the order of Mechanism::ions
     std::vector<NeutralSource> neutrals; ///< in the order of Mechanism::neutrals
     double wafer_temperature_k = 300;
-    /// Of `ions`, the tallies of the mechanism and the symmetry of the domain. Build once per
-    /// plasma state and share; if null every call of solve_surface builds its own.
-    std::shared_ptr<const IonTables> ion_tables;
 };
 struct Sampling {
     int rays_per_element = 64;
@@ -49,6 +47,8 @@ struct SurfaceStep {
     /// rate_batch[b][e]: the rate had only batch b been used; their spread is the sampling error.
     std::vector<std::vector<double>> rate_batch;
     std::vector<int> growth_material; ///< film material that grows on the element, or -1
+    /// Ion tables of the plasma state: the next step with the same ions takes them from here.
+    std::shared_ptr<const IonTables> ion_tables;
     int iterations = 0;               ///< of transport and kinetics against each other
     double residual = 0;              ///< largest change of a sticking probability in the last one
 };

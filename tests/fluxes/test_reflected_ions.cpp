@@ -37,7 +37,8 @@ IonReflection mirror_law(double probability) {
 struct Estimate {
     double value, error;
 };
-template <class Where> Estimate average(const ReflectedIons& r, const Surface& s, Where where) {
+template <class Where>
+Estimate average(const ReflectedIons& r, const Surface& s, Where where) {
     std::vector<double> batch;
     for (const auto& value : r.value) {
         double sum = 0, area = 0;
@@ -49,17 +50,19 @@ template <class Where> Estimate average(const ReflectedIons& r, const Surface& s
         batch.push_back(sum / area);
     }
     double mean = 0, square = 0;
-    for (double b : batch) mean += b / batch.size();
-    for (double b : batch) square += (b - mean) * (b - mean);
+    for (double b : batch)
+        mean += b / batch.size();
+    for (double b : batch)
+        square += (b - mean) * (b - mean);
     return {mean, std::sqrt(square / (batch.size() * (batch.size() - 1)))};
 }
 
 } // namespace
 
 TEST_CASE("energy kept in binary collisions", "[reflected]") {
-    // Oracle: table of K(chi/N)^N for N = 1, 2, 3: argon and chlorine on silicon, argon on tungsten.
-    // Source: kinematics of elastic two-body collisions, derived here.
-    // Tolerance: 6e-4 (three printed digits); a collision too many must fail.
+    // Oracle: table of K(chi/N)^N for N = 1, 2, 3: argon and chlorine on silicon, argon on
+    // tungsten. Source: kinematics of elastic two-body collisions, derived here. Tolerance: 6e-4
+    // (three printed digits); a collision too many must fail.
     struct Row {
         double theta;
         std::array<double, 9> kept; ///< Ar-Si, Cl-Si, Ar-W for N = 1, 2, 3; 0 = too far for one
@@ -70,7 +73,8 @@ TEST_CASE("energy kept in binary collisions", "[reflected]") {
          {75, {.638, .818, .877, .682, .838, .890, .943, .971, .980}},
          {80, {.833, .916, .944, .852, .925, .950, .974, .987, .991}},
          {85, {.957, .979, .986, .962, .981, .987, .993, .997, .998}}}};
-    const std::array<std::array<double, 2>, 3> pairs = {{{39.948, 28.0855}, {35.453, 28.0855}, {39.948, 183.84}}};
+    const std::array<std::array<double, 2>, 3> pairs = {
+        {{39.948, 28.0855}, {35.453, 28.0855}, {39.948, 183.84}}};
     for (const Row& row : rows)
         for (int p = 0; p < 3; ++p)
             for (int n = 1; n <= 3; ++n) {
@@ -81,7 +85,8 @@ TEST_CASE("energy kept in binary collisions", "[reflected]") {
                 CAPTURE(row.theta, p, n);
                 CHECK(std::fabs(energy_kept(law, pairs[p][0], c) - expected) < 6e-4);
                 law.collisions = n + 1;
-                if (row.theta <= 80) CHECK(std::fabs(energy_kept(law, pairs[p][0], c) - expected) > 2e-3);
+                if (row.theta <= 80)
+                    CHECK(std::fabs(energy_kept(law, pairs[p][0], c) - expected) > 2e-3);
             }
 }
 
@@ -97,7 +102,8 @@ TEST_CASE("reflection probability and direction", "[reflected]") {
     CHECK(reflection_probability(law, 0) == Approx(1));
     const Vec3 normal(0, 0, 1), down(std::sin(80 * degree), 0, -std::cos(80 * degree));
     law.scatter_deg = 0;
-    CHECK((reflected_direction(law, down, normal, normal, 1) - Vec3(down.x, 0, -down.z)).length() < 1e-12);
+    CHECK((reflected_direction(law, down, normal, normal, 1) - Vec3(down.x, 0, -down.z)).length() <
+          1e-12);
     law.scatter_deg = 10;
     const int count = 20000;
     double sideways = 0;
@@ -111,8 +117,10 @@ TEST_CASE("reflection probability and direction", "[reflected]") {
 }
 
 TEST_CASE("microtrench band under tilted walls", "[reflected]") {
-    // Oracle: vertical beam, walls tilted by alpha, height H, specular with probability P: extra floor
-    //         flux P cos(2 alpha) from the foot out to W = H tan(alpha) / cos(2 alpha), none beyond.
+    // Oracle: vertical beam, walls tilted by alpha, height H, specular with probability P: extra
+    // floor
+    //         flux P cos(2 alpha) from the foot out to W = H tan(alpha) / cos(2 alpha), none
+    //         beyond.
     // Source: ray geometry, derived here.
     // Tolerance: 4 standard errors, those < 1 %; the band edge within one element.
     const double alpha = GENERATE(1.0, 2.0, 5.0), height = 500, floor = 200, p = 0.7;
@@ -163,9 +171,11 @@ TEST_CASE("microtrench band under tilted walls", "[reflected]") {
 }
 
 TEST_CASE("reflected ions: weight is kept", "[reflected]") {
-    // Oracle: with reflection P at every hit the tally of one per ion is P w1 + P^2 w2 + ...; at P = 1 on
-    //         the walls and 0 on the floor every ion that starts on a wall ends on the floor or leaves;
-    //         scatter and roulette change no mean: share reaching floor + escaped = share reflected.
+    // Oracle: with reflection P at every hit the tally of one per ion is P w1 + P^2 w2 + ...; at P
+    // = 1 on
+    //         the walls and 0 on the floor every ion that starts on a wall ends on the floor or
+    //         leaves; scatter and roulette change no mean: share reaching floor + escaped = share
+    //         reflected.
     // Source: conservation.
     // Tolerance: 4 standard errors.
     Domain d;
@@ -174,7 +184,8 @@ TEST_CASE("reflected ions: weight is kept", "[reflected]") {
     const Surface s = tests::trench(d, 40, 200, 2.0);
     const RayCaster caster(d, s, 4);
     std::vector<int> material;
-    for (const Vec3& n : s.normal) material.push_back(std::fabs(n.x) > 0.5 ? 1 : 0);
+    for (const Vec3& n : s.normal)
+        material.push_back(std::fabs(n.x) > 0.5 ? 1 : 0);
     IonReflection wall = mirror_law(1.0);
     wall.scatter_deg = 3;
     const auto trace = [&](double probability) {
@@ -212,7 +223,8 @@ TEST_CASE("reflected ions: same bits for any number of threads", "[reflected]") 
         options.refresh = refresh;
         return trace_reflected(d, s, caster, material,
                                {{"Ar+", 40, 1.0, IonDistribution::thermal_fall(100, 0.3, 0.3)}},
-                               {{0, {SquareRootLaw{0.1, 20}, FlatAngle{}, 1}}}, {IonReflection{}}, options)
+                               {{0, {SquareRootLaw{0.1, 20}, FlatAngle{}, 1}}}, {IonReflection{}},
+                               options)
             .value;
     };
     const auto one = run(1, 0);
@@ -220,6 +232,7 @@ TEST_CASE("reflected ions: same bits for any number of threads", "[reflected]") 
     CHECK(run(4, 0) == one);
     CHECK(run(1, 1) != one);
     double sum = 0;
-    for (double v : one[0]) sum += v;
+    for (double v : one[0])
+        sum += v;
     CHECK(sum > 0);
 }
