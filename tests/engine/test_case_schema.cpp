@@ -30,7 +30,8 @@ Json value_of(const YamlNode& node) {
             array.push_back(value_of(item));
         return array;
     }
-    if (node.is_empty()) return nullptr;
+    if (node.is_empty())
+        return nullptr;
     if (!node.is_quoted && (node.text == "true" || node.text == "false"))
         return node.text == "true";
     if (!node.is_quoted && std::regex_match(node.text, std::regex("-?[0-9]+")))
@@ -51,11 +52,12 @@ bool accepts(const Json& schema, const Json& value);
 
 bool accepts_object(const Json& schema, const Json& value) {
     for (const Json& key : schema.value("required", Json::array()))
-        if (!value.contains(key.get<std::string>())) return false;
+        if (!value.contains(key.get<std::string>()))
+            return false;
     const Json known = schema.value("properties", Json::object());
     const Json others = schema.value("additionalProperties", Json(true));
     for (const auto& [key, member] : value.items()) {
-        if (known.contains(key) ? !accepts(known[key], member)
+        if (known.contains(key)   ? !accepts(known[key], member)
             : others.is_boolean() ? !others.get<bool>()
                                   : !accepts(others, member))
             return false;
@@ -71,10 +73,12 @@ bool accepts_number(const Json& schema, double value) {
 
 /// The keywords that the schema uses, by the rules of draft 2020-12.
 bool accepts(const Json& schema, const Json& value) {
-    if (schema.contains("type") && !has_type(value, schema["type"])) return false;
+    if (schema.contains("type") && !has_type(value, schema["type"]))
+        return false;
     if (schema.contains("enum")) {
         const auto& words = schema["enum"];
-        if (std::find(words.begin(), words.end(), value) == words.end()) return false;
+        if (std::find(words.begin(), words.end(), value) == words.end())
+            return false;
     }
     if (schema.contains("anyOf")) {
         const auto& any = schema["anyOf"];
@@ -85,9 +89,12 @@ bool accepts(const Json& schema, const Json& value) {
         !std::regex_search(value.get<std::string>(),
                            std::regex(schema["pattern"].get<std::string>())))
         return false;
-    if (value.is_number()) return accepts_number(schema, value.get<double>());
-    if (value.is_object()) return accepts_object(schema, value);
-    if (!value.is_array()) return true;
+    if (value.is_number())
+        return accepts_number(schema, value.get<double>());
+    if (value.is_object())
+        return accepts_object(schema, value);
+    if (!value.is_array())
+        return true;
     const std::size_t most = schema.value("maxItems", std::size_t{1} << 30);
     if (value.size() < schema.value("minItems", std::size_t{0}) || value.size() > most)
         return false;
@@ -137,10 +144,10 @@ TEST_CASE("the schema accepts groups of films and every shape of opening") {
 
 TEST_CASE("the schema rejects what can be seen without knowing the whole case") {
     const Json schema = Json::parse(json_schema());
-    for (const char* name : {"01_no_unit", "02_unknown_key", "04_missing_keys", "05_empty_values",
-                             "10_comment_without_space", "13_ambiguous_units",
-                             "17_not_available_yet", "18_targets", "21_wrong_shapes",
-                             "28_holes_in_extruded", "29_unknown_shape"}) {
+    for (const char* name :
+         {"01_no_unit", "02_unknown_key", "04_missing_keys", "05_empty_values",
+          "10_comment_without_space", "13_ambiguous_units", "17_not_available_yet", "18_targets",
+          "21_wrong_shapes", "28_holes_in_extruded", "29_unknown_shape"}) {
         INFO(name);
         CHECK_FALSE(accepts(schema, document(malformed + name + ".yaml")));
     }
