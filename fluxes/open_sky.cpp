@@ -107,30 +107,59 @@ void OpenSky::unwrap_normals() {
     }
 }
 
-OpenSky::Strings OpenSky::pull(const std::vector<Point>& point, const std::vector<double>& start_angle) {
+OpenSky::Strings OpenSky::pull(const std::vector<Point>& point,
+                               const std::vector<double>& start_angle) {
     const int n = static_cast<int>(point.size());
     Strings strings{std::vector<int>(n, -1), std::vector<double>(n, -0.5 * pi)};
     for (int i = 1; i < n; ++i) {
-        int vertex = i - 1;
-        double angle = start_angle[i];
-        while (strings.parent[vertex] >= 0 && strings.angle[vertex] > angle) {
-            vertex = strings.parent[vertex];
-            angle = angle_near(point[vertex].x - point[i].x, point[vertex].z - point[i].z, angle);
-        }
-        strings.parent[i] = vertex;
-        strings.angle[i] = angle;
+        const Tangent t = tangent(point, strings, point[i], {i - 1, start_angle[i]});
+        strings.parent[i] = t.vertex;
+        strings.angle[i] = t.angle;
     }
     return strings;
 }
 
-/// Angle of the tangent from a point to the surface that ends at `vertex`, seen at `angle`.
-double OpenSky::tangent_angle(const std::vector<Point>& point, const Strings& strings,
-                          const Point& from, int vertex, double angle) {
-    while (strings.parent[vertex] >= 0 && strings.angle[vertex] > angle) {
-        vertex = strings.parent[vertex];
-        angle = angle_near(point[vertex].x - from.x, point[vertex].z - from.z, angle);
+/// Tangent from a point to the surface that ends at `nearest.vertex`. To the right of that vertex's
+/// string it touches the string; to the left of it, other parts of the surface may stand out.
+OpenSky::Tangent OpenSky::tangent(const std::vector<Point>& point, const Strings& strings,
+                                  const Point& from, Tangent nearest) {
+    if (nearest.angle + pi < strings.angle[nearest.vertex]) return farthest(point, from, nearest);
+    while (strings.parent[nearest.vertex] >= 0 && strings.angle[nearest.vertex] > nearest.angle) {
+        // Going along the string to its vertex turns the view of the next by less than pi.
+        const double near = strings.angle[nearest.vertex];
+        nearest.vertex = strings.parent[nearest.vertex];
+        const Point& p = point[nearest.vertex];
+        nearest.angle = angle_near(p.x - from.x, p.z - from.z, near);
     }
-    return angle;
+    return nearest;
+}
+
+/// The same by a walk over the whole surface to that side, largest unwrapped angle. A turn is
+/// counted where the view crosses straight down, angles within a turn compare by cross products.
+OpenSky::Tangent OpenSky::farthest(const std::vector<Point>& point, const Point& from,
+                                   const Tangent& nearest) {
+    Point view{point[nearest.vertex].x - from.x, point[nearest.vertex].z - from.z};
+    int turns = static_cast<int>(
+        std::lround((nearest.angle - std::atan2(view.x, view.z)) / (2 * pi)));
+    Point best = view;
+    int best_turns = turns, best_vertex = nearest.vertex;
+    for (int v = nearest.vertex - 1; v >= 0; --v) {
+        const Point next{point[v].x - from.x, point[v].z - from.z};
+        const bool was_right = view.x >= 0, is_right = next.x >= 0;
+        if (was_right != is_right &&
+            view.z + view.x / (view.x - next.x) * (next.z - view.z) < 0)
+            turns += is_right ? -1 : 1;
+        view = next;
+        bool larger = turns > best_turns;
+        if (turns == best_turns)
+            larger = is_right != (best.x >= 0) ? is_right
+                                               : view.x * best.z - view.z * best.x > 0;
+        if (!larger) continue;
+        best = view;
+        best_turns = turns;
+        best_vertex = v;
+    }
+    return {best_vertex, std::atan2(best.x, best.z) + 2 * pi * best_turns};
 }
 
 double OpenSky::flux(const InPlane& plane, int element) const {
@@ -183,14 +212,14 @@ std::vector<Visible> OpenSky::visible(int element, double part) const {
     if (i > 0) {
         const Point& p = point_[i - 1];
         const double angle = angle_near(p.x - here.x, p.z - here.z, normal_[i] - 0.5 * pi);
-        seen.low = std::max(seen.low, tangent_angle(point_, left_, here, i - 1, angle));
+        seen.low = std::max(seen.low, tangent(point_, left_, here, {i - 1, angle}).angle);
     }
     if (i + 2 <= last) {
         const Point& p = point_[i + 2];
         const double angle = angle_near(here.x - p.x, p.z - here.z, -(normal_[i] + 0.5 * pi));
         const Point flipped{-here.x, here.z};
-        seen.high = std::min(seen.high, -tangent_angle(reflected_, right_, flipped,
-                                                       last - (i + 2), angle));
+        seen.high = std::min(
+            seen.high, -tangent(reflected_, right_, flipped, {last - (i + 2), angle}).angle);
     }
     if (!(seen.low < seen.high)) return {};
     return {seen};

@@ -20,10 +20,10 @@ struct Visible {
 /// Over the part of the surface that is open to the source the gas is simply connected, so the sky
 /// seen from a point is one interval, bounded by the tangent to the surface walked to the left and
 /// the tangent to the surface walked to the right. The tangent points are found with taut strings:
-/// the string from a vertex runs over the tangent vertex and on along that vertex's own string, so
-/// one walk gives all of them (the funnel of shortest paths in a polygon). Walks start at the
-/// highest vertex: nothing beyond it can hide anything. Angles are unwrapped along the surface,
-/// which handles overhangs and spirals.
+/// the string from a vertex runs over the tangent vertex and on along that vertex's own string (as
+/// shortest paths in a polygon do), so one walk gives nearly all of them; below some overhangs the
+/// surface is searched. Walks start at the highest vertex: nothing beyond it can hide anything.
+/// Angles are unwrapped along the surface, which handles overhangs and spirals.
 ///
 /// Pieces of solid that float in the gas break that picture; then the sky is found per point by
 /// taking away the interval that each segment hides (slower, exact per point).
@@ -51,6 +51,11 @@ class OpenSky {
         std::vector<int> parent;
         std::vector<double> angle;
     };
+    /// A vertex and the unwrapped angle at which it is seen.
+    struct Tangent {
+        int vertex;
+        double angle;
+    };
     /// A segment of any chain in the base period.
     struct Segment {
         Point a, b;
@@ -60,8 +65,9 @@ class OpenSky {
     void unwrap_normals();
     void find_floating(const geometry::Domain&, const geometry::Surface&);
     static Strings pull(const std::vector<Point>&, const std::vector<double>& start_angle);
-    static double tangent_angle(const std::vector<Point>&, const Strings&, const Point& from,
-                                int vertex, double angle);
+    static Tangent tangent(const std::vector<Point>&, const Strings&, const Point& from,
+                           Tangent nearest);
+    static Tangent farthest(const std::vector<Point>&, const Point& from, const Tangent& nearest);
     double flux_by_strings(const InPlane&, int position) const;
     double flux_by_points(const InPlane&, int element) const;
     std::vector<Visible> visible_by_segments(int element, double part) const;

@@ -20,14 +20,18 @@ namespace {
 constexpr int layered_row = -2;      ///< marks cells whose row depends on where the front is
 constexpr double layer_reach = 0.6;  ///< [cells] more than any sub-step moves
 constexpr double refresh_move = 0.75; ///< [cells] nearest elements and band hold for this far
+constexpr double resting_share = 0.5; ///< a wall rests if slower than this share of the front beside it
 constexpr double edge_margin = 1.4;  ///< [cells] the contour may come nearer the edge of the band
 
-/// A cell near an interface or a grown film: where its foot was when phi was phi0.
+/// A cell near an interface or a grown film, or beside a wall that rests: where its foot was when phi
+/// was phi0.
 struct LayeredCell {
     int cell = 0;
     Foot foot;
     double phi0 = 0;
-    unsigned unseen = 0; ///< neighbours behind an interface that the front runs along
+    unsigned resting = 0; ///< sides (bits) whose neighbour belongs to a wall that rests
+    unsigned unseen = 0;  ///< sides behind an interface that the front runs along
+    unsigned beside = 0;  ///< sides whose neighbour is nearer to a resting wall than to this front
     Layers layers;
 };
 
@@ -54,6 +58,8 @@ class Advance {
     void refresh();
     void classify_cells(const ClosestElements&);
     void classify_elements();
+    unsigned resting_sides(std::size_t c) const;
+    Slopes special_slopes(const double* phi, const LayeredCell&) const;
     Slopes slopes(const double* phi, std::size_t c, unsigned unseen = 0) const {
         return extruded_ ? slopes_2d(band_, phi, c, 1 / h_, unseen)
                          : slopes_3d(band_, phi, c, 1 / h_, unseen);
@@ -84,7 +90,7 @@ class Advance {
     std::vector<LayeredCell> layered_;
     std::vector<int> layered_elements_;
     std::vector<Tilt> element_tilt_;
-    std::vector<double> element_rate_;
+    std::vector<double> element_rate_, own_rate_; ///< own: before films are peeled
 };
 
 /// Nearest elements, redistancing and rows for the present band; `surface` displaced by `moved`.
@@ -97,8 +103,8 @@ void Advance::refresh() {
     // Nothing of the front is left near such cells: they drop out of the band.
     for (std::size_t c = 0; c < band_.size(); ++c)
         if (closest.element[c] < 0) band_.phi[c] = std::copysign(4 * h_, band_.phi[c]);
-    classify_cells(closest);
     classify_elements();
+    classify_cells(closest);
     slope_.assign(band_.size(), 0.0);
     next_ = band_.phi;
     moved_since_refresh_ = 0;
@@ -115,7 +121,7 @@ void Advance::classify_cells(const ClosestElements& closest) {
             const Band::Cell& cell = band_.cells[c];
             const double z = (cell.k + 0.5) * h_, z_foot = closest.foot[c].z;
             const double middle = 0.5 * (z + z_foot), spread = 0.5 * std::fabs(z - z_foot);
-            if (finder_.near(e, middle, reach + spread)) row_[c] = layered_row;
+            if (finder_.near(e, middle, reach + spread) || resting_sides(c)) row_[c] = layered_row;
             else row_[c] = finder_.row_below(e, {closest.foot[c], -surface_.normal[e], false});
         }
     });
@@ -129,7 +135,22 @@ void Advance::classify_cells(const ClosestElements& closest) {
                 foot_of(band_.domain.node(cell.i, cell.j, cell.k), band_.phi[c], closest.foot[c],
                         surface_.normal[element_[c]], h_);
             layered_.back().phi0 = band_.phi[c];
+            layered_.back().resting = resting_sides(c);
         }
+}
+
+/// Sides where the front of cell c meets one that turns by more than 45 degrees and rests, or nearly.
+unsigned Advance::resting_sides(std::size_t c) const {
+    const int e = element_[c];
+    const double rate = own_rate_[e];
+    if (rate <= 0) return 0;
+    unsigned sides = 0;
+    for (int side = 0; side < 6; ++side) {
+        const int n = band_.neighbour[c][side], other = n < 0 ? -1 : element_[n];
+        if (other < 0 || other == e || std::fabs(own_rate_[other]) > resting_share * rate) continue;
+        if (surface_.normal[e].dot(surface_.normal[other]) < 0.7) sides |= 1u << side;
+    }
+    return sides;
 }
 
 void Advance::classify_elements() {
@@ -147,6 +168,7 @@ void Advance::classify_elements() {
         // Growth starts a film, so such elements are layered too.
         if (element_rate_[e] < 0 || finder_.near(id, p.z, reach)) layered_elements_.push_back(id);
     }
+    own_rate_ = element_rate_;
     for (const int e : layered_elements_) element_rate_[e] = 0;
 }
 
@@ -181,6 +203,18 @@ double Advance::layered_change(const Slopes& s, const Layers& layers, double dt)
     return sum;
 }
 
+/// Slopes of the front that the cell belongs to. Where a front meets a resting wall at an inner edge,
+/// the gas beyond the bisector is nearer to the wall; its phi would hold the front back, so the
+/// front's own plane stands in for it.
+Slopes Advance::special_slopes(const double* phi, const LayeredCell& at) const {
+    Slopes s = slopes(phi, at.cell, at.unseen | at.beside);
+    for (int side = 0; side < 6; ++side) {
+        if (!(at.beside >> side & 1)) continue;
+        (side & 1 ? s.plus : s.minus)[side / 2] = (&surface_.normal[element_[at.cell]].x)[side / 2];
+    }
+    return s;
+}
+
 Speed Advance::first_stage() {
     Speed most;
     const double* phi = band_.phi.data();
@@ -190,7 +224,7 @@ Speed Advance::first_stage() {
         for (std::size_t c = begin; c < end; ++c) {
             const int row = row_[c];
             slope_[c] = 0;
-            if (row < 0 || tables_.largest(row) == 0) continue;
+            if (!tables_.moves(row)) continue;
             Speed speed;
             slope_[c] = change(slopes(phi, c), row, speed);
             waves = std::max(waves, speed.waves);
@@ -215,7 +249,18 @@ void Advance::find_layers(LayeredCell& at, Speed& most) {
     Foot foot = at.foot;
     foot.point += foot.inward * ((phi[c] - at.phi0) / std::max(length(), 0.5));
     at.unseen = finder_.unseen_sides(c, phi, e, foot, element_tilt_[e].angle);
-    if (at.unseen) s = slopes(phi, c, at.unseen);
+    at.beside = 0;
+    for (int side = 0; side < 6; ++side) {
+        const int next = band_.neighbour[c][side];
+        if (next < 0 || (at.unseen >> side & 1)) continue;
+        if (!(at.resting >> side & 1) &&
+            !finder_.pinned(next, phi, e, element_tilt_[e].angle))
+            continue;
+        const double n = (&surface_.normal[e].x)[side / 2] * (side & 1 ? h_ : -h_);
+        const double there = phi[next];
+        if (there > 0 && there < phi[c] + n - 0.05 * h_) at.beside |= 1u << side;
+    }
+    s = special_slopes(phi, at);
     finder_.for_cell(c, phi, length(), e, foot, layer_reach * h_, at.layers);
     for (int k = 0; k < at.layers.count; ++k) {
         Speed speed;
@@ -237,7 +282,7 @@ void Advance::step(double dt) {
     for_ranges(layered_.size(), [&](std::size_t begin, std::size_t end) {
         for (std::size_t l = begin; l < end; ++l) {
             const std::size_t c = layered_[l].cell;
-            slope_[c] = layered_change(slopes(band_.phi.data(), c, layered_[l].unseen), layered_[l].layers, dt);
+            slope_[c] = layered_change(special_slopes(band_.phi.data(), layered_[l]), layered_[l].layers, dt);
         }
     });
     for_ranges(band_.size(), [&](std::size_t begin, std::size_t end) {
@@ -247,7 +292,7 @@ void Advance::step(double dt) {
     for_ranges(band_.size(), [&](std::size_t begin, std::size_t end) {
         for (std::size_t c = begin; c < end; ++c) {
             const int row = row_[c];
-            if (row < 0 || tables_.largest(row) == 0) continue;
+            if (!tables_.moves(row)) continue;
             Speed speed;
             const double second = change(slopes(next, c), row, speed);
             band_.phi[c] += 0.5 * dt * (slope_[c] + second);
@@ -256,7 +301,7 @@ void Advance::step(double dt) {
     for_ranges(layered_.size(), [&](std::size_t begin, std::size_t end) {
         for (std::size_t l = begin; l < end; ++l) {
             const std::size_t c = layered_[l].cell;
-            const double second = layered_change(slopes(next, c, layered_[l].unseen), layered_[l].layers, dt);
+            const double second = layered_change(special_slopes(next, layered_[l]), layered_[l].layers, dt);
             band_.phi[c] += 0.5 * dt * (slope_[c] + second);
         }
     });

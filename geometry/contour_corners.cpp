@@ -210,24 +210,33 @@ bool settle(Vec3& p, double s, const RebuiltCorner& corner, double h) {
     return true;
 }
 
-} // namespace
+bool cross_each_other(const Vec3& a, const Vec3& b, const Vec3& c, const Vec3& d) {
+    const auto side = [](const Vec3& p, const Vec3& q, const Vec3& r) {
+        return (q.x - p.x) * (r.z - p.z) - (q.z - p.z) * (r.x - p.x);
+    };
+    return side(a, b, c) * side(a, b, d) < 0 && side(c, d, a) * side(c, d, b) < 0;
+}
 
-void rebuild_corners(ContourChain& chain, const Domain& domain) {
-    const double h = domain.spacing;
-    if (chain.points.size() < 4) return;
-    const Padded padded(chain, h);
-    const std::vector<double> arcs = corner_arcs(padded);
-    std::vector<RebuiltCorner> corners;
-    for (std::size_t m = 0; m < arcs.size(); ++m) {
-        RebuiltCorner corner;
-        corner.s = arcs[m];
-        const double before = m > 0 ? arcs[m] - arcs[m - 1] : reach;
-        const double after = m + 1 < arcs.size() ? arcs[m + 1] - arcs[m] : reach;
-        if (intersect(padded, h, before - 0.5, after - 0.5, corner)) corners.push_back(corner);
+/// Index of a point where the line folds back on itself or crosses itself nearby, or -1. A contour
+/// of phi never does: a fold is a corner fitted to pieces too short for it.
+int find_fold(const std::vector<ContourPoint>& points) {
+    constexpr double fold = 150 * pi / 180;
+    constexpr int nearby = 12;
+    const int size = static_cast<int>(points.size());
+    for (int n = 1; n + 1 < size; ++n) {
+        const Vec3 before = points[n].p - points[n - 1].p, after = points[n + 1].p - points[n].p;
+        if (std::fabs(turn(before, after)) > fold) return n;
+        for (int m = n + 1; m + 1 < size && m <= n + nearby; ++m)
+            if (cross_each_other(points[n - 1].p, points[n].p, points[m].p, points[m + 1].p))
+                return (n + m) / 2;
     }
-    if (corners.empty()) return;
+    return -1;
+}
 
-    const double half = 0.5 * domain.width_x();
+/// The chain's points with the corners put in and the points that they disturb settled.
+std::vector<ContourPoint> with_corners(const ContourChain& chain, const Padded& padded,
+                                       const std::vector<RebuiltCorner>& corners, double half,
+                                       double h) {
     std::vector<ContourPoint> rebuilt;
     const int size = static_cast<int>(chain.points.size());
     const int head = static_cast<int>(std::find(padded.source.begin(), padded.source.end(), 0) -
@@ -254,7 +263,37 @@ void rebuild_corners(ContourChain& chain, const Domain& domain) {
         if (keep) rebuilt.push_back(q);
     }
     place(padded.length);
-    chain.points = std::move(rebuilt);
+    return rebuilt;
+}
+
+} // namespace
+
+void rebuild_corners(ContourChain& chain, const Domain& domain) {
+    const double h = domain.spacing;
+    if (chain.points.size() < 4) return;
+    const Padded padded(chain, h);
+    const std::vector<double> arcs = corner_arcs(padded);
+    std::vector<RebuiltCorner> corners;
+    for (std::size_t m = 0; m < arcs.size(); ++m) {
+        RebuiltCorner corner;
+        corner.s = arcs[m];
+        const double before = m > 0 ? arcs[m] - arcs[m - 1] : reach;
+        const double after = m + 1 < arcs.size() ? arcs[m + 1] - arcs[m] : reach;
+        if (intersect(padded, h, before - 0.5, after - 0.5, corner)) corners.push_back(corner);
+    }
+    while (!corners.empty()) {
+        auto rebuilt = with_corners(chain, padded, corners, 0.5 * domain.width_x(), h);
+        const int fold = find_fold(rebuilt);
+        if (fold < 0) {
+            chain.points = std::move(rebuilt);
+            return;
+        }
+        const Vec3 at = rebuilt[fold].p;
+        corners.erase(std::min_element(corners.begin(), corners.end(),
+                                       [&](const RebuiltCorner& a, const RebuiltCorner& b) {
+                                           return (a.p - at).length() < (b.p - at).length();
+                                       }));
+    }
 }
 
 } // namespace rille::geometry

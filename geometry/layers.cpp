@@ -81,7 +81,7 @@ void LayerFinder::stack_below(int element, Foot foot, double reach, Layers& out)
         const int row = row_of_film(element, film);
         const double depth = stack_.distance_to_interface(foot.point + inward * step, inward) + step;
         gone += depth;
-        const bool blocked = tables_.largest(row) == 0;
+        const bool blocked = !tables_.moves(row);
         out.add(row, blocked || gone > reach ? endless : depth);
         if (blocked || gone > reach) return;
         foot.point += inward * depth;
@@ -128,21 +128,35 @@ double LayerFinder::limit(std::size_t cell, const double* phi, double steep, int
     return least;
 }
 
-unsigned LayerFinder::unseen_sides(std::size_t cell, const double* phi, int element,
-                                   const Foot& foot, double angle) const {
+unsigned LayerFinder::slow_sides(std::size_t cell, const double* phi, int element,
+                                 double angle) const {
     const double h = band_.domain.spacing;
     const int own = stack_.film_at((band_.cells[cell].k + 0.5) * h);
-    if (film_inside(foot) != own) return 0;
-    const double rate = tables_.rate(row_of_film(element, own), angle);
     unsigned sides = 0;
     for (int side = 4; side < 6; ++side) {
         const int n = band_.neighbour[cell][side];
         if (n < 0 || phi[n] >= 0) continue;
         const int other = stack_.film_at((band_.cells[n].k + 0.5) * h);
-        if (other != own && tables_.rate(row_of_film(element, other), angle) < 0.5 * rate)
+        if (other != own && tables_.rate(row_of_film(element, other), angle) <
+                                0.5 * tables_.rate(row_of_film(element, own), angle))
             sides |= 1u << side;
     }
     return sides;
+}
+
+unsigned LayerFinder::unseen_sides(std::size_t cell, const double* phi, int element,
+                                   const Foot& foot, double angle) const {
+    const int own = stack_.film_at((band_.cells[cell].k + 0.5) * band_.domain.spacing);
+    return film_inside(foot) == own ? slow_sides(cell, phi, element, angle) : 0;
+}
+
+bool LayerFinder::pinned(std::size_t cell, const double* phi, int element, double angle) const {
+    const double h = band_.domain.spacing, z = (band_.cells[cell].k + 0.5) * h;
+    if (phi[cell] <= 0) return false;
+    const unsigned sides = slow_sides(cell, phi, element, angle);
+    const Film& own = stack_.films()[stack_.film_at(z)];
+    return ((sides >> 4 & 1) && phi[cell] > z - own.bottom - 0.1 * h) ||
+           ((sides >> 5 & 1) && phi[cell] > own.top - z - 0.1 * h);
 }
 
 void LayerFinder::for_cell(std::size_t cell, const double* phi, double steep, int element,
@@ -167,7 +181,7 @@ void LayerFinder::for_cell(std::size_t cell, const double* phi, double steep, in
         const int row = row_of_film(element, film);
         const Film& f = stack_.films()[film];
         gone += f.top - f.bottom;
-        const bool end = gone > reach || tables_.largest(row) == 0;
+        const bool end = gone > reach || !tables_.moves(row);
         out.add(row, end ? endless : f.top - f.bottom);
         if (end) return;
     }

@@ -64,8 +64,13 @@ class LayerFinder {
     unsigned unseen_sides(std::size_t cell, const double* phi, int element, const Foot&,
                           double angle) const;
 
+    /// Whether the cell lies in the gas right at an interface whose film holds still, at `angle`,
+    /// against the film the cell lies in: its phi is the distance to that interface.
+    bool pinned(std::size_t cell, const double* phi, int element, double angle) const;
+
   private:
     double grown(int element, Layers& out) const;
+    unsigned slow_sides(std::size_t cell, const double* phi, int element, double angle) const;
     void stack_below(int element, Foot foot, double reach, Layers& out) const;
     int film_inside(const Foot&) const;
     int row_of_film(int element, int film) const {
