@@ -114,9 +114,10 @@ TEST_CASE("every fault of a table has its place") {
           "t.csv:3:6: \"1\" does not exceed the edge 2 before it");
     CHECK(report_of(matrix + ",0,1,2\n100,1\n110\n") ==
           "t.csv:4:1: 2 values in a row of 3 (energy edge and one for each angle bin)");
-    CHECK(report_of("# quantity=per_bin\n# angle_convention=projected\n,0,1,2\n1,1,1\n2\n") ==
-          "t.csv:2:1: angle_convention: \"projected\": angles must be polar angles from the surface "
-          "normal (polar); projected angles are another distribution");
+    CHECK(
+        report_of("# quantity=per_bin\n# angle_convention=projected\n,0,1,2\n1,1,1\n2\n") ==
+        "t.csv:2:1: angle_convention: \"projected\": angles must be polar angles from the surface "
+        "normal (polar); projected angles are another distribution");
     CHECK(report_of("# quantty=per_bin\n") ==
           "t.csv: quantity: the header line # quantity=... is missing; one of "
           "flux_fraction_per_bin, flux_per_eV, per_bin, per_eV_per_sr or per_eV_per_deg is due\n"
