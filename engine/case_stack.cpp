@@ -69,7 +69,8 @@ struct StackBuilder {
         if (ended)
             problems.add(film.at, film.path, "lies below a semi-infinite film; semi-infinite is "
                                              "for the last film of the stack");
-        if (film_index(result, name) >= 0 && film["name"].is_good)
+        if (film_index(result, name) >= 0 && film["name"].is_good &&
+            !problems.any_at(film["name"].at))
             problems.add(film["name"].at, film["name"].path,
                          fmt::format("the name {} is used twice", quoted(name)));
         if (name == "mask" || name == "liner")

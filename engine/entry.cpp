@@ -48,11 +48,19 @@ bool is_structure(const YamlNode& node, const Rule& rule, Problems& problems) {
     return fits;
 }
 
-void report_unknown(const YamlNode::Member& member, const Rule& rule, Problems& problems) {
+void report_unknown(const YamlNode& node, const YamlNode::Member& member, const Rule& rule,
+                    Problems& problems) {
     std::vector<std::string> allowed;
-    for (const Rule& known : rule.members)
-        if (known.later.empty()) allowed.push_back(known.key);
-    const std::string guess = did_you_mean(member.key, allowed);
+    std::vector<std::string> absent; // a key that is there already was not meant
+    for (const Rule& known : rule.members) {
+        if (!known.later.empty()) continue;
+        allowed.push_back(known.key);
+        if (!node.find(known.key)) absent.push_back(known.key);
+    }
+    std::string guess = did_you_mean(member.key, absent);
+    const std::string near = closest(member.key, allowed);
+    if (guess.empty() && !near.empty() && edit_distance(member.key, near) == 1)
+        guess = did_you_mean(member.key, {near}); // one letter off: meant all the same
     problems.add(member.key_at, member.value.path,
                  guess.empty() ? fmt::format("unknown key; allowed: {}", listed(allowed))
                                : "unknown key" + guess);
@@ -61,7 +69,7 @@ void report_unknown(const YamlNode::Member& member, const Rule& rule, Problems& 
 void report_missing(const YamlNode& node, const Rule& member, Problems& problems) {
     std::string form = member.meaning;
     if (member.kind == Kind::quantity || member.kind == Kind::quantities)
-        form += fmt::format("; for example {}: {}", member.key, example(member.dimension));
+        form += "; for example " + example(member.dimension);
     problems.add(node.at, node.path,
                  fmt::format("the key {} is missing ({})", quoted(member.key), form));
 }
@@ -80,11 +88,20 @@ Entry default_entry(const YamlNode& parent, const Rule& rule) {
     return entry;
 }
 
+/// Whether the key is named by the refusal of another one that stands in its place ("give
+/// spacing"): then its absence goes without saying.
+bool is_named_by_refusal(const YamlNode& node, const Rule& rule, const std::string& key) {
+    for (const Rule& later : rule.members)
+        if (node.find(later.key) && later.later.find("give " + key) != std::string::npos)
+            return true;
+    return false;
+}
+
 void check_map(const YamlNode& node, const Rule& rule, Entry& entry, Problems& problems) {
     for (const YamlNode::Member& member : node.members) {
         const Rule* known = rule.member(member.key);
         if (!known)
-            report_unknown(member, rule, problems);
+            report_unknown(node, member, rule, problems);
         else if (!known->later.empty())
             problems.add(member.key_at, member.value.path, "not available yet: " + known->later);
     }
@@ -92,9 +109,10 @@ void check_map(const YamlNode& node, const Rule& rule, Entry& entry, Problems& p
         if (!member.later.empty()) continue;
         if (const YamlNode* value = node.find(member.key))
             entry.members.emplace_back(member.key, check(*value, member, problems));
-        else if (member.is_required)
+        else if (member.is_required && !node.is_damaged &&
+                 !is_named_by_refusal(node, rule, member.key))
             report_missing(node, member, problems);
-        else if (!member.default_text.empty())
+        if (!node.find(member.key) && !member.default_text.empty())
             entry.members.emplace_back(member.key, default_entry(node, member));
     }
 }
@@ -179,7 +197,7 @@ void check_word(const YamlNode& node, const Rule& rule, Entry& entry, Problems& 
 
 void check_structure(const YamlNode& node, const Rule& rule, Entry& entry, Problems& problems) {
     if (!is_structure(node, rule, problems)) return;
-    entry.is_good = true;
+    entry.is_good = !node.is_damaged;
     if (rule.kind == Kind::list)
         check_items(node, rule, entry, problems);
     else if (rule.kind == Kind::dictionary)
@@ -200,8 +218,10 @@ const Entry& Entry::operator[](const std::string& key) const {
 Entry check(const YamlNode& node, const Rule& rule, Problems& problems) {
     Entry entry = entry_for(node, rule);
     switch (rule.kind) {
-    case Kind::text:
-    case Kind::sentence: entry.is_good = read_text(node, problems).has_value(); break;
+    case Kind::sentence: // numbers in it are judged by whoever reads the sentence
+        entry.is_good = node.is_scalar() || read_text(node, problems).has_value();
+        break;
+    case Kind::text: entry.is_good = read_text(node, problems).has_value(); break;
     case Kind::word: check_word(node, rule, entry, problems); break;
     case Kind::integer: store(entry, read_integer(node, rule.range, problems)); break;
     case Kind::number: store(entry, read_number(node, rule.range, problems)); break;

@@ -224,7 +224,7 @@ Speed Advance::first_stage() {
         for (std::size_t c = begin; c < end; ++c) {
             const int row = row_[c];
             slope_[c] = 0;
-            if (row < 0 || tables_.largest(row) == 0) continue;
+            if (!tables_.moves(row)) continue;
             Speed speed;
             slope_[c] = change(slopes(phi, c), row, speed);
             waves = std::max(waves, speed.waves);
@@ -292,7 +292,7 @@ void Advance::step(double dt) {
     for_ranges(band_.size(), [&](std::size_t begin, std::size_t end) {
         for (std::size_t c = begin; c < end; ++c) {
             const int row = row_[c];
-            if (row < 0 || tables_.largest(row) == 0) continue;
+            if (!tables_.moves(row)) continue;
             Speed speed;
             const double second = change(slopes(next, c), row, speed);
             band_.phi[c] += 0.5 * dt * (slope_[c] + second);

@@ -4,14 +4,13 @@
 #include "geometry/band_topology.hpp"
 
 #include <algorithm>
+#include <array>
 #include <cmath>
 #include <limits>
 
 namespace rille::geometry {
 
 namespace {
-
-constexpr int nearest_ring = 1; ///< cells within this distance [cells] of the contour come first
 
 Vec3 nearest_on_segment(const Vec3& a, const Vec3& b, const Vec3& p) {
     const Vec3 along = b - a;
@@ -69,7 +68,7 @@ class Search {
     }
     void offer(const Vec3& p, int e, Candidate& best) const;
     bool better(double distance, double facing, int e, const Candidate& best) const;
-    void improve(const ClosestElements& old, std::size_t c, ClosestElements& out) const;
+    void improve(std::size_t c, const std::vector<Candidate>& old, Candidate& best) const;
 
     const Band& band_;
     const Surface& surface_;
@@ -117,6 +116,11 @@ void Search::offer(const Vec3& p, int e, Candidate& best) const {
     if (e == best.element) return;
     const Vec3 shift = shift_of(e);
     const Vec3 local = image(p, surface_.centre[e] + shift);
+    // An element's reach from its centre: half a segment, the disc of a quad.
+    const double size = domain_.extruded() ? 0.5 * surface_.area[e] : std::sqrt(surface_.area[e]);
+    const double least = best.distance + size + tolerance_;
+    const Vec3 apart = local - shift - surface_.centre[e];
+    if (apart.dot(apart) > least * least) return;
     const Vec3 foot = nearest_point(surface_, domain_.extruded(), e, local - shift) + shift;
     const Vec3 away = local - foot;
     const double distance = away.length();
@@ -128,49 +132,58 @@ void Search::offer(const Vec3& p, int e, Candidate& best) const {
     best = {e, distance, facing, p - away};
 }
 
-void Search::improve(const ClosestElements& old, std::size_t c, ClosestElements& out) const {
+/// The best of what the cell and its neighbours knew. An element is looked at once.
+void Search::improve(std::size_t c, const std::vector<Candidate>& old, Candidate& best) const {
     const Band::Cell& cell = band_.cells[c];
     const Vec3 p = domain_.node(cell.i, cell.j, cell.k);
-    Candidate best;
-    if (old.element[c] >= 0) offer(p, old.element[c], best);
-    for (int h = home_first_[c]; h < home_first_[c + 1]; ++h) offer(p, home_element_[h], best);
+    best = old[c];
+    std::array<int, 6> seen;
+    int count = 0;
+    const auto homes = [&](std::size_t at) {
+        for (int h = home_first_[at]; h < home_first_[at + 1]; ++h) offer(p, home_element_[h], best);
+    };
+    homes(c);
     for (const int n : band_.neighbour[c]) {
         if (n < 0 || n == static_cast<int>(c)) continue;
-        if (old.element[n] >= 0) offer(p, old.element[n], best);
-        for (int h = home_first_[n]; h < home_first_[n + 1]; ++h) offer(p, home_element_[h], best);
+        const int e = old[n].element;
+        if (e >= 0 && std::find(seen.begin(), seen.begin() + count, e) == seen.begin() + count) {
+            seen[count++] = e;
+            offer(p, e, best);
+        }
+        homes(n);
     }
-    out.element[c] = best.element;
-    out.foot[c] = best.foot;
 }
 
 ClosestElements Search::run() {
     const std::size_t n = band_.size();
-    ClosestElements now;
-    now.element.assign(n, -1);
-    now.foot.resize(n);
-    for (std::size_t c = 0; c < n; ++c)
-        if (home_first_[c] < home_first_[c + 1]) now.element[c] = home_element_[home_first_[c]];
+    std::vector<Candidate> now(n), next;
     // Cells by distance in rings of one cell: inner rings are settled before outer ones ask them.
-    std::vector<std::vector<int>> rings(1 + static_cast<int>(band_half_width));
+    std::array<std::vector<int>, 4> rings;
     for (std::size_t c = 0; c < n; ++c) {
-        const double ring = std::fabs(band_.phi[c]) / (nearest_ring * domain_.spacing);
+        const double ring = std::fabs(band_.phi[c]) / domain_.spacing;
         rings[std::min(rings.size() - 1, static_cast<std::size_t>(ring))].push_back(
             static_cast<int>(c));
     }
-    ClosestElements next = now;
     for (const std::vector<int>& ring : rings)
         for (int round = 0; round < 3; ++round) {
+            next.resize(ring.size());
             for_ranges(ring.size(), [&](std::size_t begin, std::size_t end) {
-                for (std::size_t r = begin; r < end; ++r) improve(now, ring[r], next);
+                for (std::size_t r = begin; r < end; ++r) improve(ring[r], now, next[r]);
             });
             for_ranges(ring.size(), [&](std::size_t begin, std::size_t end) {
-                for (std::size_t r = begin; r < end; ++r) {
-                    now.element[ring[r]] = next.element[ring[r]];
-                    now.foot[ring[r]] = next.foot[ring[r]];
-                }
+                for (std::size_t r = begin; r < end; ++r) now[ring[r]] = next[r];
             });
         }
-    return now;
+    ClosestElements out;
+    out.element.resize(n);
+    out.foot.resize(n);
+    for_ranges(n, [&](std::size_t begin, std::size_t end) {
+        for (std::size_t c = begin; c < end; ++c) {
+            out.element[c] = now[c].element;
+            out.foot[c] = now[c].foot;
+        }
+    });
+    return out;
 }
 
 } // namespace

@@ -1,6 +1,7 @@
 // SPDX-License-Identifier: Apache-2.0
 #include "geometry/hamiltonian.hpp"
 
+#include "geometry/band_topology.hpp"
 #include "geometry/check.hpp"
 
 #include <algorithm>
@@ -160,17 +161,13 @@ RateTables::RateTables(const NormalRates& rates) : rates_(rates) {
         while (s + 2 < static_cast<int>(n) && angle[s + 1] <= start) ++s;
         bin_.push_back(s);
     }
-    for (std::size_t r = 0; r < rows; ++r) {
-        const double* v = values(static_cast<int>(r));
-        bool same = true;
-        double most = 0;
-        for (std::size_t a = 0; a < n; ++a) {
-            same = same && v[a] == v[0];
-            most = std::max(most, std::fabs(v[a]));
+    constant_.resize(rows);
+    for_ranges(rows, [&](std::size_t begin, std::size_t end) {
+        for (std::size_t r = begin; r < end; ++r) {
+            const double* v = values(static_cast<int>(r));
+            constant_[r] = std::all_of(v, v + n, [v](double rate) { return rate == v[0]; });
         }
-        constant_.push_back(same);
-        largest_.push_back(most);
-    }
+    });
 }
 
 int RateTables::segment(double angle) const {
@@ -235,7 +232,7 @@ std::array<double, 3> dissipation(const RateTables& tables, int row, bool extrud
         return square > 0 ? one / std::sqrt(square) : 0;
     };
     if (tables.constant(row)) {
-        const double rate = tables.largest(row);
+        const double rate = std::fabs(tables.rate(row, 0));
         return {rate * share(high[0], low[1] * low[1] + low[2] * low[2]),
                 rate * share(high[1], low[0] * low[0] + low[2] * low[2]),
                 rate * share(high[2], low[0] * low[0] + low[1] * low[1])};

@@ -47,7 +47,8 @@ class RateTables {
         return v[0] + (v[1] - v[0]) * ((angle - rates_.angles[s]) * inverse_width_[s]);
     }
     bool constant(int row) const { return row < 0 || constant_[row]; }
-    double largest(int row) const { return row < 0 ? 0 : largest_[row]; }
+    /// Whether a row has any rate but 0.
+    bool moves(int row) const { return row >= 0 && (!constant_[row] || values(row)[0] != 0); }
     /// Over tilts from `low` to `high`, low.angle <= high.angle, both within the table.
     WaveSpeed wave_speed(int row, const Tilt& low, const Tilt& high) const;
 
@@ -61,7 +62,6 @@ class RateTables {
     double bins_per_radian_ = 0;
     std::vector<double> inverse_width_, sine_, cosine_;
     std::vector<char> constant_;
-    std::vector<double> largest_;
 };
 
 /// |grad phi| by Godunov's choice of one-sided slopes, for a rate that does not depend on the normal

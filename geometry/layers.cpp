@@ -81,7 +81,7 @@ void LayerFinder::stack_below(int element, Foot foot, double reach, Layers& out)
         const int row = row_of_film(element, film);
         const double depth = stack_.distance_to_interface(foot.point + inward * step, inward) + step;
         gone += depth;
-        const bool blocked = tables_.largest(row) == 0;
+        const bool blocked = !tables_.moves(row);
         out.add(row, blocked || gone > reach ? endless : depth);
         if (blocked || gone > reach) return;
         foot.point += inward * depth;
@@ -181,7 +181,7 @@ void LayerFinder::for_cell(std::size_t cell, const double* phi, double steep, in
         const int row = row_of_film(element, film);
         const Film& f = stack_.films()[film];
         gone += f.top - f.bottom;
-        const bool end = gone > reach || tables_.largest(row) == 0;
+        const bool end = gone > reach || !tables_.moves(row);
         out.add(row, end ? endless : f.top - f.bottom);
         if (end) return;
     }

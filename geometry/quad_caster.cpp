@@ -40,7 +40,6 @@ struct QuadCaster::Scene {
     void add_images(const Domain&, const Surface&, double skirt);
     void add_image(const Domain&, const Surface&, int sx, int sy, double skirt);
     void build();
-    double exact_distance(const Vec3& origin, const Vec3& direction, int quad, bool second) const;
 };
 
 namespace {
@@ -151,16 +150,6 @@ void QuadCaster::Scene::build() {
     // the same.
     tbb::task_arena(1).execute([&] { rtcCommitScene(scene); });
     RILLE_CHECK(rtcGetDeviceError(device) == RTC_ERROR_NONE, "Embree cannot build its tree");
-}
-
-/// Distance to the plane of one half of a quad (Embree cuts it into 0 1 3 and 2 3 1).
-double QuadCaster::Scene::exact_distance(const Vec3& origin, const Vec3& direction, int quad,
-                                         bool second) const {
-    const auto& q = quads[quad];
-    const Vec3 a = vertices[q[second ? 2 : 0]], b = vertices[q[second ? 3 : 1]];
-    const Vec3 c = vertices[q[second ? 1 : 3]];
-    const Vec3 across = (b - a).cross(c - a);
-    return across.dot(a - origin) / across.dot(direction);
 }
 
 struct QuadCaster::Ray {
@@ -313,11 +302,7 @@ Hit QuadCaster::trace(const Vec3& origin, const Vec3& direction, int from_elemen
         rtcIntersect1(scene.scene, &start.context, &rh);
         if (rh.hit.geomID != RTC_INVALID_GEOMETRY_ID) {
             const int quad = static_cast<int>(rh.hit.primID);
-            const double rough = rh.ray.tfar - slack_;
-            const double exact =
-                scene.exact_distance(ray.origin, ray.direction, quad, rh.hit.u + rh.hit.v > 1);
-            // At grazing incidence the plane says little; then the rough distance is as good.
-            const double t = std::fabs(exact - rough) < 100 * slack_ ? exact : rough;
+            const double t = rh.ray.tfar - slack_;
             return finish(ray, Hit::Kind::surface, scene.source[quad], t);
         }
         if (top <= side)

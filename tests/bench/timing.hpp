@@ -4,6 +4,7 @@
 
 #include <algorithm>
 #include <chrono>
+#include <ctime>
 #include <utility>
 #include <vector>
 
@@ -15,10 +16,23 @@ inline double median(std::vector<double> v) {
     return n % 2 ? v[n / 2] : 0.5 * (v[n / 2 - 1] + v[n / 2]);
 }
 
+/// Wall time [s].
 template <class Work> double seconds(Work&& work) {
     const auto start = std::chrono::steady_clock::now();
     work();
     return std::chrono::duration<double>(std::chrono::steady_clock::now() - start).count();
+}
+
+/// Time [s] that this thread ran: does not count what others run on the same core.
+template <class Work> double thread_seconds(Work&& work) {
+    const auto now = [] {
+        timespec t{};
+        clock_gettime(CLOCK_THREAD_CPUTIME_ID, &t);
+        return static_cast<double>(t.tv_sec) + 1e-9 * static_cast<double>(t.tv_nsec);
+    };
+    const double start = now();
+    work();
+    return now() - start;
 }
 
 struct Comparison {
@@ -27,14 +41,14 @@ struct Comparison {
     double ratio = 0;  ///< median of theirs / ours, pair by pair; above 1 we are faster
 };
 
-/// One unmeasured pair first, then `repeats` measured pairs.
+/// For work on one thread. One unmeasured pair first, then `repeats` measured pairs.
 template <class Ours, class Theirs> Comparison compare(int repeats, Ours ours, Theirs theirs) {
     ours();
     theirs();
     std::vector<double> a, b, ratio;
     for (int n = 0; n < repeats; ++n) {
-        a.push_back(seconds(ours));
-        b.push_back(seconds(theirs));
+        a.push_back(thread_seconds(ours));
+        b.push_back(thread_seconds(theirs));
         ratio.push_back(b.back() / a.back());
     }
     return {median(a), median(b), median(ratio)};
