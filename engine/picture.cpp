@@ -187,10 +187,11 @@ double draw_plan(Svg& svg, const PictureContext& p, double x, double y) {
     const double middle = depth && depth->value ? -0.5 * *depth->value : -d.spacing;
     const Box frame{x, at - 10, d.width_x() * scale, d.width_y() * scale};
     svg.rect(frame, "fill=\"none\" stroke=\"#555555\" stroke-width=\"0.8\"");
-    const std::pair<double, const char*> cuts[] = {{0.0, "stroke=\"#000000\" stroke-width=\"1.8\""},
-                                                   {middle,
-                                                    "stroke=\"#2b6cb0\" stroke-width=\"1.8\" "
-                                                    "stroke-dasharray=\"6 3\""}};
+    // Half a cell up, in the mask: an unetched floor lies at z = 0 itself.
+    const std::pair<double, const char*> cuts[] = {
+        {0.5 * d.spacing, "stroke=\"#000000\" stroke-width=\"1.8\""},
+        {middle, "stroke=\"#2b6cb0\" stroke-width=\"1.8\" "
+                 "stroke-dasharray=\"6 3\""}};
     for (const auto& [z, style] : cuts)
         for (const SectionLine& line : horizontal_section(p.last.surface, z)) {
             auto points = line.points;

@@ -188,7 +188,7 @@ void draw_cd_mark(Svg& svg, const View& v, const PictureContext& p,
     TextStyle style{11, Anchor::middle, true, mark_colour, true, 0};
     const std::string bare = value.substr(0, value.find(" ±"));
     for (const std::string& text : {name + " " + value + " nm", value + " nm", value, bare}) {
-        if (text_width(text, style) > b - a - 12)
+        if (text_width(text, style) > b - a - 20)
             continue;
         for (const double offset : {-6.0, 15.0})
             if (places.take(text_box(0.5 * (a + b), y + offset, text, style))) {

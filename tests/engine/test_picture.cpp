@@ -2,6 +2,8 @@
 #include "engine/output_folder.hpp"
 #include "engine/palette.hpp"
 #include "engine/picture.hpp"
+#include "geometry/front.hpp"
+#include "geometry/initial_shape.hpp"
 #include "tests/engine/output_samples.hpp"
 
 #include <cairo.h>
@@ -277,4 +279,35 @@ TEST_CASE("palette: materials stay apart in grey and by hatch") {
     CHECK(lightness("#ffffff") == Approx(100).margin(0.01));
     CHECK(lightness("#777777") == Approx(50).margin(0.5));
     CHECK(material_looks({"Si", "Si"}).size() == 2);
+}
+
+TEST_CASE("picture: sections of a hole's front as the level set gives it") {
+    // Oracle: a hole of radius 28 nm through a mask of 60 nm: one line from side to side, one ring
+    // in plan, walls at x = -28 and 28. Source: derived here. Tolerance: a tenth of a cell (0.2
+    // nm).
+    Case c = tests::trench_case();
+    c.title = "hole before the etch";
+    c.domain.symmetry = geometry::Symmetry::full;
+    c.domain.cells_x = c.domain.cells_y = 48;
+    c.mask.thickness = 60;
+    c.mask.openings[0].shape = geometry::Opening::Shape::round;
+    c.mask.openings[0].width_x = c.mask.openings[0].width_y = 56;
+    const geometry::Front front(c.domain, geometry::initial_distance(c.domain, c.mask), -8,
+                                c.mask.thickness + 8);
+    SurfaceState last;
+    last.surface = geometry::extract_surface(front);
+    const Section section = vertical_section(c.domain, last.surface, section_y(c));
+    REQUIRE(section.size() == 1);
+    CHECK_FALSE(section[0].closed);
+    CHECK(std::fabs(section[0].points.front()[0]) == Approx(48).margin(1e-9));
+    CHECK(std::fabs(section[0].points.back()[0]) == Approx(48).margin(1e-9));
+    double left = 0, right = 0;
+    REQUIRE(walls_at(section, 30, 0, left, right));
+    CHECK(left == Approx(-28).margin(0.2));
+    CHECK(right == Approx(28).margin(0.2));
+    const Section plan = horizontal_section(last.surface, 30);
+    REQUIRE(plan.size() == 1);
+    CHECK(plan[0].closed);
+    const std::string svg = picture_svg(c, {{0, section}}, last, Metrics());
+    keep("front", svg, png_of(svg, 1));
 }
