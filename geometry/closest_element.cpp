@@ -180,7 +180,7 @@ ClosestElements Search::run() {
             static_cast<int>(c));
     }
     for (const std::vector<int>& ring : rings)
-        for (int round = 0; round < 3; ++round) {
+        for (int round = 0; round < (&ring == &rings[0] ? 3 : 2); ++round) {
             next.resize(ring.size());
             for_ranges(ring.size(), [&](std::size_t begin, std::size_t end) {
                 for (std::size_t r = begin; r < end; ++r)
