@@ -242,7 +242,8 @@ nlohmann::json disk(int cells) {
 
 int main() {
     openvdb::initialize();
-    nlohmann::json line = sphere();
-    line["notched_disk"] = {disk(100)};
-    std::cout << line.dump() << std::endl;
+    std::cout << sphere().dump() << std::endl;
+    nlohmann::json turned = disk(100);
+    turned["bench"] = "advance_notched_disk";
+    std::cout << turned.dump() << std::endl;
 }
