@@ -19,8 +19,8 @@ void copy_plasmas(YamlNode& root, Problems&);
 /// Makes the paths of files absolute: they are relative to the folder of the case.
 void absolute_files(YamlNode& root, const std::string& folder);
 
-/// Index of a material in the run's list, added if it is new.
-int material_index(Case&, const std::string& name);
+/// Index of a material in the run's list, added if it is new; 0 for a name already reported.
+int material_index(Case&, const Entry& name);
 
 void build_domain(const Entry& root, Case&, Problems&);
 void build_stack(const Entry& root, Case&, Problems&);

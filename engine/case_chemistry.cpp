@@ -77,6 +77,13 @@ void build_chemistry(const Entry& root, const std::string& folder, Case& result,
     if (!chemistry)
         return;
     result.materials = std::move(chemistry->materials);
+    for (const std::string& name : result.materials) {
+        const MaterialData* data = library.material(name);
+        // Resists charge up like any other insulator.
+        const bool insulates = data && (data->kind == MaterialClass::insulator ||
+                                        data->kind == MaterialClass::resist);
+        result.insulator.push_back(insulates ? 1 : 0);
+    }
     result.mechanism = std::move(chemistry->mechanism);
     result.reflection = std::move(chemistry->reflection);
     result.standing = std::move(chemistry->standing);

@@ -18,9 +18,9 @@ namespace {
 int batched(const Entry& entry, Problems& problems) {
     const auto count = static_cast<int>(entry.number);
     if (entry.is_good && count % fluxes::batches != 0)
-        problems.add(entry.at, entry.path,
-                     fmt::format("{} is not a multiple of {}", quoted(entry.text),
-                                 fluxes::batches));
+        problems.add(
+            entry.at, entry.path,
+            fmt::format("{} is not a multiple of {}", quoted(entry.text), fluxes::batches));
     return count;
 }
 
@@ -33,11 +33,13 @@ void build_sampling(const Entry& root, Case& result, Problems& problems) {
 
 Case build(YamlNode& node, const std::string& name, const std::string& folder,
            const std::vector<std::string>& overrides, Problems& problems) {
-    if (!node.is_map()) problems.throw_if_any(); // a syntax error: there is nothing to check
+    if (!node.is_map())
+        problems.throw_if_any(); // a syntax error: there is nothing to check
     apply_overrides(node, overrides, problems);
     copy_plasmas(node, problems);
     absolute_files(node, folder);
-    if (node.at.file.empty()) node.at.file = name;
+    if (node.at.file.empty())
+        node.at.file = name;
     Entry root = check(node, case_rules(), problems);
     Case result;
     result.file = name;

@@ -21,20 +21,19 @@ struct MaskBuilder {
     Problems& problems;
     double widening = 0; ///< full width at the mask top less that at the bottom [nm]
 
-    double period_y() const {
-        return result.domain.extruded() ? 0 : result.domain.width_y();
-    }
+    double period_y() const { return result.domain.extruded() ? 0 : result.domain.width_y(); }
 
     void add(const Entry& item) {
         const Entry& cd = item["cd"];
         const std::string shape = item["shape"].text;
         if (result.domain.extruded() && (shape == "round" || shape == "elliptic")) {
-            problems.add(item["shape"].at, item["shape"].path,
-                         fmt::format("{} holes need symmetry: full; extruded has trench or lines",
-                                     shape));
+            problems.add(
+                item["shape"].at, item["shape"].path,
+                fmt::format("{} holes need symmetry: full; extruded has trench or lines", shape));
             return;
         }
-        if (!cd.is_good || !item["centre"].is_good) return;
+        if (!cd.is_good || !item["centre"].is_good)
+            return;
         Opening opening;
         opening.name = item["name"].text;
         opening.shape = shape == "round"      ? Opening::Shape::round
@@ -44,8 +43,8 @@ struct MaskBuilder {
         const bool is_pair = shape == "elliptic";
         opening.width_x = (is_pair ? cd.numbers[0] : cd.number) - extra;
         opening.width_y = opening.shape == Opening::Shape::trench ? 0
-                          : is_pair ? cd.numbers[1] - extra
-                                    : opening.width_x;
+                          : is_pair                               ? cd.numbers[1] - extra
+                                                                  : opening.width_x;
         const std::vector<double>& centre = item["centre"].numbers;
         opening.centre_x = centre[0];
         opening.centre_y = centre.size() > 1 ? centre[1] : 0;
@@ -58,13 +57,14 @@ struct MaskBuilder {
 
     void check_name(const Entry& name) {
         if (name.text == "open field" || name.text == "mask")
-            problems.add(name.at, name.path,
-                         fmt::format("{} has a meaning of its own; choose another name",
-                                     quoted(name.text)));
+            problems.add(
+                name.at, name.path,
+                fmt::format("{} has a meaning of its own; choose another name", quoted(name.text)));
     }
 
     void add_array(const Entry& item, const Opening& first) {
-        if (!item["space"].is_good || !item["count"].is_good) return;
+        if (!item["space"].is_good || !item["count"].is_good)
+            return;
         const int count = static_cast<int>(item["count"].number);
         // cd and space are both measured at cd_at: their sum does not depend on the height.
         const double step = item["cd"].number + item["space"].number;
@@ -72,13 +72,14 @@ struct MaskBuilder {
             Opening opening = first;
             opening.name = count > 1 ? fmt::format("{} {}", first.name, n + 1) : first.name;
             opening.centre_x = first.centre_x + (n - 0.5 * (count - 1)) * step;
-            if (!add_one(item, opening)) return;
+            if (!add_one(item, opening))
+                return;
         }
     }
 
     bool add_one(const Entry& item, const Opening& opening) {
-        const double least = std::min(opening.width_x, opening.width_y > 0 ? opening.width_y
-                                                                           : opening.width_x);
+        const double least =
+            std::min(opening.width_x, opening.width_y > 0 ? opening.width_y : opening.width_x);
         if (!(least > 0) || !(least + widening > 0)) {
             problems.add(item["cd"].at, item["cd"].path,
                          fmt::format("with this thickness and sidewall angle the opening closes "
@@ -111,9 +112,12 @@ struct MaskBuilder {
     bool fits(double centre, double width, double period) const {
         const double half = 0.5 * period, reach = 0.5 * widest(width);
         const double slack = 1e-9 * period;
-        if (std::abs(centre) > half + slack || reach > half + slack) return false;
-        if (result.domain.sides == geometry::Sides::periodic) return true;
-        return std::abs(centre) + reach <= half + slack || std::abs(std::abs(centre) - half) <= slack;
+        if (std::abs(centre) > half + slack || reach > half + slack)
+            return false;
+        if (result.domain.sides == geometry::Sides::periodic)
+            return true;
+        return std::abs(centre) + reach <= half + slack ||
+               std::abs(std::abs(centre) - half) <= slack;
     }
 
     void warn_coarse(const Opening& opening) {
@@ -149,7 +153,8 @@ struct MaskBuilder {
 
     double apart(double a, double b, double period) const {
         const double plain = std::abs(a - b);
-        if (result.domain.sides == geometry::Sides::mirror || period <= 0) return plain;
+        if (result.domain.sides == geometry::Sides::mirror || period <= 0)
+            return plain;
         return std::min(plain, std::abs(period - plain));
     }
 };
@@ -165,10 +170,11 @@ std::vector<std::string> opening_names(const Case& result) {
 
 void build_mask(const Entry& root, Case& result, Problems& problems) {
     const Entry& mask = root["mask"];
-    if (!mask.is_given || !mask.is_good) return;
+    if (!mask.is_given || !mask.is_good)
+        return;
     result.mask.thickness = mask["thickness"].number;
-    result.mask.sidewall_angle_deg = mask["sidewall_angle"].is_good ? mask["sidewall_angle"].number
-                                                                    : 90;
+    result.mask.sidewall_angle_deg =
+        mask["sidewall_angle"].is_good ? mask["sidewall_angle"].number : 90;
     result.mask.corner_radius = mask["corner_radius"].number;
     if (mask["corner_radius"].is_good && mask["thickness"].is_good &&
         result.mask.corner_radius > result.mask.thickness)
@@ -178,11 +184,13 @@ void build_mask(const Entry& root, Case& result, Problems& problems) {
     MaskBuilder builder{result, problems};
     builder.widening =
         2 * result.mask.thickness / std::tan(result.mask.sidewall_angle_deg * rad_per_deg);
-    if (std::abs(result.mask.sidewall_angle_deg - 90) < 1e-12) builder.widening = 0;
+    if (std::abs(result.mask.sidewall_angle_deg - 90) < 1e-12)
+        builder.widening = 0;
     const std::size_t before = problems.size();
     for (const Entry& item : mask["openings"].items)
         builder.add(item);
-    if (problems.size() == before) builder.check_gaps(mask["openings"]);
+    if (problems.size() == before)
+        builder.check_gaps(mask["openings"]);
 }
 
 } // namespace rille::engine

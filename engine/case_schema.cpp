@@ -43,9 +43,9 @@ Rule opening_rule() {
             word_rule("shape", {shape}, "shape of the opening").required()};
         for (Rule& rule : own)
             members.push_back(rule);
-        members.push_back(word_rule("cd_at", {"mask bottom", "mask top"},
-                                    "height at which cd is given")
-                              .by_default("mask bottom"));
+        members.push_back(
+            word_rule("cd_at", {"mask bottom", "mask top"}, "height at which cd is given")
+                .by_default("mask bottom"));
         members.push_back(quantities_rule("centre", D::length, {},
                                           "centre of the opening (of the array) from the middle "
                                           "of the period: x, or [x, y]")
@@ -122,31 +122,32 @@ Rule rf_bias_rule() {
 
 Rule plasma_rule() {
     const char* unused = " (kept with the result, not used by the model)";
-    Rule neutral =
-        map_rule("",
-                 {quantity_rule("flux", D::flux, zero_or_more(), "flux at the open wafer surface")
-                      .required(),
-                  quantity_rule("temperature", D::temperature, above_zero(),
-                                "temperature of this neutral in the gas")
-                      .by_default("300 K"),
-                  later_rule("pressure", "partial pressures are not turned into fluxes; give flux")},
-                 "one neutral");
+    Rule neutral = map_rule(
+        "",
+        {quantity_rule("flux", D::flux, zero_or_more(), "flux at the open wafer surface")
+             .required(),
+         quantity_rule("temperature", D::temperature, above_zero(),
+                       "temperature of this neutral in the gas")
+             .by_default("300 K"),
+         later_rule("pressure", "partial pressures are not turned into fluxes; give flux")},
+        "one neutral");
     Rule neutrals = dictionary_rule("neutrals", neutral, "neutrals that reach the wafer, by name");
     neutrals.members.push_back(
         later_rule("from", "fluxes cannot be found from monitor rates; give each flux"));
     neutrals.members.push_back(
         later_rule("unknown", "fluxes cannot be found from monitor rates; give each flux"));
     const Rule ions = dictionary_rule(
-                    "ions", quantity_rule("", D::share, {0, 1}, "share of the ion flux").required(),
-                    "ions by name with their shares, 100 % in all");
+        "ions", quantity_rule("", D::share, {0, 1}, "share of the ion flux").required(),
+        "ions by name with their shares, 100 % in all");
     return map_rule(
         "",
         {text_rule("from", "name of a plasma to copy; keys given here replace the copied ones"),
          quantity_rule("pressure", D::pressure, above_zero(), std::string("gas pressure") + unused),
-         dictionary_rule("flows",
-                         quantity_rule("", D::gas_flow, zero_or_more(), "flow of one gas").required(),
-                         std::string("gas flows") + unused),
-         quantity_rule("source_power", D::power, zero_or_more(), std::string("source power") + unused),
+         dictionary_rule(
+             "flows", quantity_rule("", D::gas_flow, zero_or_more(), "flow of one gas").required(),
+             std::string("gas flows") + unused),
+         quantity_rule("source_power", D::power, zero_or_more(),
+                       std::string("source power") + unused),
          quantity_rule("source_frequency", D::frequency, above_zero(),
                        std::string("source frequency") + unused),
          quantity_rule("gas_temperature", D::temperature, above_zero(),
@@ -156,10 +157,12 @@ Rule plasma_rule() {
              .by_default("3 eV"),
          quantity_rule("ion_flux", D::ion_flux, zero_or_more(), "all ions together at the wafer")
              .required(),
-         later_rule("electron_density", "the ion flux is not found from the density; give ion_flux"),
+         later_rule("electron_density",
+                    "the ion flux is not found from the density; give ion_flux"),
          ions,
-         quantity_rule("ion_transverse_temperature", D::energy, zero_or_more(),
-                       "of the ions across the field at the sheath edge: sets their spread in angle")
+         quantity_rule(
+             "ion_transverse_temperature", D::energy, zero_or_more(),
+             "of the ions across the field at the sheath edge: sets their spread in angle")
              .by_default("0.1 eV"),
          ion_energies_rule(), neutrals.by_default("{}"), rf_bias_rule(),
          later_rule("collisions", "collisions in the sheath are not modelled; use ion_energies"),
@@ -168,13 +171,14 @@ Rule plasma_rule() {
 }
 
 Rule recipe_rule() {
-    const Rule until = map_rule(
-        "until",
-        {text_rule("reaches", "film; ends at first touch at the place"),
-         text_rule("cleared", "film; ends when it is fully exposed over the opening"),
-         sentence_rule("at", "NAME centre or open field", "^(.+ +centre|open field)$",
-                       "an opening's centre, or the open field: the flat-film rate").required()},
-        "ends when a film is met");
+    const Rule until =
+        map_rule("until",
+                 {text_rule("reaches", "film; ends at first touch at the place"),
+                  text_rule("cleared", "film; ends when it is fully exposed over the opening"),
+                  sentence_rule("at", "NAME centre or open field", "^(.+ +centre|open field)$",
+                                "an opening's centre, or the open field: the flat-film rate")
+                      .required()},
+                 "ends when a film is met");
     Rule step = map_rule(
         "",
         {text_rule("name", "name of the step").required(),
@@ -182,15 +186,15 @@ Rule recipe_rule() {
          sentence_rule("time", "a time, or N % of STEP",
                        "^([0-9.eE+-]+ *(s|min|ms|us|h)|[0-9.eE+-]+ *% +of +.+)$",
                        "how long; N % of STEP is overetch by the time that step took"),
-         until,
-         quantity_rule("no_longer_than", D::time, above_zero(), "ends the step in any case"),
+         until, quantity_rule("no_longer_than", D::time, above_zero(), "ends the step in any case"),
          truth_rule("must_end", "true: reaching no_longer_than fails the run").by_default("false"),
          later_rule("cycle", "cycles are not run; write the steps one by one"),
          later_rule("repeat", "cycles are not run; write the steps one by one")},
         "one step; give time, or until with no_longer_than");
     return map_rule("recipe",
                     {quantity_rule("wafer_temperature", D::temperature, above_zero(),
-                                   "temperature of the wafer surface").required(),
+                                   "temperature of the wafer surface")
+                         .required(),
                      list_rule("steps", step, "steps in order").required()},
                     "what is done");
 }
@@ -200,7 +204,8 @@ std::vector<Rule> later_rules() {
     const char* measured = "comparing with measured profiles comes later; leave it out";
     std::vector<Rule> rules = {
         later_rule("accuracy", "the spacing is not chosen for you; give spacing"),
-        later_rule("measured", measured), later_rule("compare", measured),
+        later_rule("measured", measured),
+        later_rule("compare", measured),
         later_rule("layout", "mask layouts are not read; write mask.openings"),
         later_rule("start", "runs start from the fresh stack; leave it out"),
         later_rule("contour", "runs start from the fresh stack; leave it out"),
@@ -211,21 +216,24 @@ std::vector<Rule> later_rules() {
 }
 
 Rule make_case_rules() {
-    Rule symmetry = word_rule("symmetry", {"extruded", "full"},
-                              "extruded: trenches and lines; full: anything that repeats in x and y")
-                        .required();
+    Rule symmetry =
+        word_rule("symmetry", {"extruded", "full"},
+                  "extruded: trenches and lines; full: anything that repeats in x and y")
+            .required();
     symmetry.later_words = {{"revolved", "round holes in r and z come later; use full"}};
     Rule targets = dictionary_rule(
         "targets",
         sentence_rule("", "at least X, at most X, or X to Y",
-                      "^(at least +.+|at most +.+|[^ ]+ *[^ ]* +to +.+)$", "the goal").required(),
+                      "^(at least +.+|at most +.+|[^ ]+ *[^ ]* +to +.+)$", "the goal")
+            .required(),
         "goals for measured quantities, by their names");
     Rule root = map_rule(
         "",
         {integer_rule("format", {1, 1}, "version of this form").required(),
          text_rule("title", "one line that says what the case is").by_default("untitled"), symmetry,
          quantities_rule("pitch", D::length, above_zero(),
-                         "width of the simulated period; full: one length or [x, y]").required(),
+                         "width of the simulated period; full: one length or [x, y]")
+             .required(),
          word_rule("sides", {"mirror", "periodic"}, "what lies beyond the period")
              .by_default("mirror"),
          quantity_rule("spacing", D::length, above_zero(),
@@ -240,21 +248,27 @@ Rule make_case_rules() {
          mask_rule(),
          dictionary_rule("tool_log", anything_rule("", "as written"),
                          "set points kept with the result, not used by the model"),
-         dictionary_rule("plasmas", plasma_rule().required(), "states of the plasma, by name").required(),
-         text_rule("chemistry", "name of a chemistry in configs, or path of a YAML file").required(),
+         dictionary_rule("plasmas", plasma_rule().required(), "states of the plasma, by name")
+             .required(),
+         text_rule("chemistry", "name of a chemistry in configs, or path of a YAML file")
+             .required(),
          recipe_rule().required(),
-         map_rule("measure",
-                  {dictionary_rule("cd",
-                                   sentence_rule("", "X above PLACE, X below PLACE or middle of FILM",
-                                                 place_pattern, "height").required(),
-                                   "heights at which the CD is measured, by label")
-                       .by_default("{}")},
-                  "what is measured beyond the standard list")
+         map_rule(
+             "measure",
+             {dictionary_rule("cd",
+                              sentence_rule("", "X above PLACE, X below PLACE or middle of FILM",
+                                            place_pattern, "height")
+                                  .required(),
+                              "heights at which the CD is measured, by label")
+                  .by_default("{}")},
+             "what is measured beyond the standard list")
              .by_default("{}"),
          targets,
-         map_rule("frames", {quantity_rule("every", D::time, above_zero(),
-                                           "time between two frames; default: ten frames a run")},
-                  "how often the shape is written").by_default("{}"),
+         map_rule("frames",
+                  {quantity_rule("every", D::time, above_zero(),
+                                 "time between two frames; default: ten frames a run")},
+                  "how often the shape is written")
+             .by_default("{}"),
          map_rule("sampling",
                   {integer_rule("rays_per_point", {8, 1048576},
                                 "rays from each surface point for neutrals, a multiple of 8")

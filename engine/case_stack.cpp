@@ -18,9 +18,11 @@ int common_cells(double width_x, double width_y, double asked) {
     const int near = std::max(1, static_cast<int>(std::lround(width_x / asked)));
     for (int off = 0; off <= std::max(1, near / 5); ++off)
         for (const int cells : {near + off, near - off}) {
-            if (cells < 1) continue;
+            if (cells < 1)
+                continue;
             const double rows = width_y * cells / width_x;
-            if (rows > 0.5 && std::abs(rows - std::round(rows)) < 1e-9 * rows) return cells;
+            if (rows > 0.5 && std::abs(rows - std::round(rows)) < 1e-9 * rows)
+                return cells;
         }
     return 0;
 }
@@ -32,8 +34,9 @@ void build_cells(const Entry& pitch, const Entry& spacing, Case& result, Problem
     const double asked = spacing.number;
     result.spacing_asked = asked;
     if (asked > width_x || (!domain.extruded() && asked > width_y)) {
-        problems.add(spacing.at, spacing.path,
-                     fmt::format("{} is wider than the pitch {}", quoted(spacing.text), pitch.text));
+        problems.add(
+            spacing.at, spacing.path,
+            fmt::format("{} is wider than the pitch {}", quoted(spacing.text), pitch.text));
         return;
     }
     const int cells = domain.extruded() ? static_cast<int>(std::lround(width_x / asked))
@@ -67,18 +70,20 @@ struct StackBuilder {
     void add(const Entry& film, const std::string& name) {
         const Entry& thickness = film["thickness"];
         if (ended)
-            problems.add(film.at, film.path, "lies below a semi-infinite film; semi-infinite is "
-                                             "for the last film of the stack");
-        if (film_index(result, name) >= 0 && film["name"].is_good)
+            problems.add(film.at, film.path,
+                         "lies below a semi-infinite film; semi-infinite is "
+                         "for the last film of the stack");
+        if (film_index(result, name) >= 0 && film["name"].is_good &&
+            !problems.any_at(film["name"].at))
             problems.add(film["name"].at, film["name"].path,
                          fmt::format("the name {} is used twice", quoted(name)));
         if (name == "mask" || name == "liner")
-            problems.add(film["name"].at, film["name"].path,
-                         fmt::format("{} is the name of the {} itself; choose another",
-                                     quoted(name), name));
+            problems.add(
+                film["name"].at, film["name"].path,
+                fmt::format("{} is the name of the {} itself; choose another", quoted(name), name));
         geometry::Film made;
         made.name = name;
-        made.material = material_index(result, film["material"].text);
+        made.material = material_index(result, film["material"]);
         made.top = top;
         made.bottom = bottom_of(thickness);
         top = made.bottom;
@@ -87,7 +92,8 @@ struct StackBuilder {
 
     double bottom_of(const Entry& thickness) {
         constexpr double nowhere = -std::numeric_limits<double>::infinity();
-        if (!thickness.is_good) return top - 1;
+        if (!thickness.is_good)
+            return top - 1;
         if (thickness.text == "semi-infinite") {
             ended = true;
             return nowhere;
@@ -107,17 +113,21 @@ struct StackBuilder {
 
 } // namespace
 
-int material_index(Case& result, const std::string& name) {
+int material_index(Case& result, const Entry& name) {
     auto& list = result.materials;
-    const auto found = std::find(list.begin(), list.end(), name);
-    if (found != list.end()) return static_cast<int>(found - list.begin());
-    list.push_back(name);
+    if (!name.is_good)
+        return 0;
+    const auto found = std::find(list.begin(), list.end(), name.text);
+    if (found != list.end())
+        return static_cast<int>(found - list.begin());
+    list.push_back(name.text);
     return static_cast<int>(list.size()) - 1;
 }
 
 int film_index(const Case& result, const std::string& name) {
     for (std::size_t f = 0; f < result.films.size(); ++f)
-        if (result.films[f].name == name) return static_cast<int>(f);
+        if (result.films[f].name == name)
+            return static_cast<int>(f);
     return -1;
 }
 
@@ -132,17 +142,18 @@ void build_domain(const Entry& root, Case& result, Problems& problems) {
     result.title = root["title"].text;
     const Entry& symmetry = root["symmetry"];
     const Entry& pitch = root["pitch"];
-    result.domain.symmetry = symmetry.text == "full" ? geometry::Symmetry::full
-                                                     : geometry::Symmetry::extruded;
+    result.domain.symmetry =
+        symmetry.text == "full" ? geometry::Symmetry::full : geometry::Symmetry::extruded;
     result.domain.sides =
         root["sides"].text == "periodic" ? geometry::Sides::periodic : geometry::Sides::mirror;
-    if (!symmetry.is_good || !pitch.is_good) return;
+    if (!symmetry.is_good || !pitch.is_good)
+        return;
     if (result.domain.extruded() && pitch.numbers.size() > 1) {
-        problems.add(pitch.at, pitch.path,
-                     "extruded has one pitch; [x, y] is for symmetry: full");
+        problems.add(pitch.at, pitch.path, "extruded has one pitch; [x, y] is for symmetry: full");
         return;
     }
-    if (root["spacing"].is_good) build_cells(pitch, root["spacing"], result, problems);
+    if (root["spacing"].is_good)
+        build_cells(pitch, root["spacing"], result, problems);
 }
 
 void build_stack(const Entry& root, Case& result, Problems& problems) {
@@ -151,7 +162,7 @@ void build_stack(const Entry& root, Case& result, Problems& problems) {
     if (mask.is_given) {
         geometry::Film film;
         film.name = "mask";
-        film.material = material_index(result, mask["material"].text);
+        film.material = material_index(result, mask["material"]);
         film.top = mask["thickness"].is_good ? mask["thickness"].number : 1;
         film.bottom = 0;
         result.films.push_back(film);
@@ -173,7 +184,7 @@ void build_stack(const Entry& root, Case& result, Problems& problems) {
                      "the last film of the stack needs thickness: semi-infinite");
     if (root["liner"].is_given) {
         result.liner_thickness = root["liner"]["thickness"].number;
-        result.liner_material = material_index(result, root["liner"]["material"].text);
+        result.liner_material = material_index(result, root["liner"]["material"]);
     }
 }
 

@@ -22,7 +22,7 @@ struct ProgressState {
 /// Tells how a run goes on: a bar that renews itself on a terminal, a line now and then elsewhere,
 /// or nothing.
 class Progress {
-  public:
+public:
     enum class Style { bar, lines, quiet };
 
     /// `seconds` is a clock (tests bring their own). The stream must outlive this object.
@@ -34,7 +34,7 @@ class Progress {
     /// Leaves the bar as it stands last, on a line of its own.
     void finish();
 
-  private:
+private:
     std::string line(const ProgressState&, double elapsed) const;
 
     std::ostream& out_;

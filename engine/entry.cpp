@@ -21,18 +21,22 @@ Entry entry_for(const YamlNode& node, const Rule& rule) {
     return entry;
 }
 
-template <class T> bool store(Entry& entry, const std::optional<T>& value) {
+template <class T>
+bool store(Entry& entry, const std::optional<T>& value) {
     entry.is_good = value.has_value();
-    if (value) entry.number = static_cast<double>(*value);
+    if (value)
+        entry.number = static_cast<double>(*value);
     return entry.is_good;
 }
 
 /// "a map with the keys name, material", "a list", for messages.
 std::string due(const Rule& rule) {
-    if (rule.kind == Kind::list) return "a list";
+    if (rule.kind == Kind::list)
+        return "a list";
     std::vector<std::string> keys;
     for (const Rule& member : rule.members)
-        if (member.later.empty() && !member.key.empty()) keys.push_back(member.key);
+        if (member.later.empty() && !member.key.empty())
+            keys.push_back(member.key);
     return keys.empty() || rule.kind == Kind::alternatives
                ? "a map of keys and values"
                : fmt::format("a map with {}", listed(keys, 6));
@@ -48,11 +52,21 @@ bool is_structure(const YamlNode& node, const Rule& rule, Problems& problems) {
     return fits;
 }
 
-void report_unknown(const YamlNode::Member& member, const Rule& rule, Problems& problems) {
+void report_unknown(const YamlNode& node, const YamlNode::Member& member, const Rule& rule,
+                    Problems& problems) {
     std::vector<std::string> allowed;
-    for (const Rule& known : rule.members)
-        if (known.later.empty()) allowed.push_back(known.key);
-    const std::string guess = did_you_mean(member.key, allowed);
+    std::vector<std::string> absent; // a key that is there already was not meant
+    for (const Rule& known : rule.members) {
+        if (!known.later.empty())
+            continue;
+        allowed.push_back(known.key);
+        if (!node.find(known.key))
+            absent.push_back(known.key);
+    }
+    std::string guess = did_you_mean(member.key, absent);
+    const std::string near = closest(member.key, allowed);
+    if (guess.empty() && !near.empty() && edit_distance(member.key, near) == 1)
+        guess = did_you_mean(member.key, {near}); // one letter off: meant all the same
     problems.add(member.key_at, member.value.path,
                  guess.empty() ? fmt::format("unknown key; allowed: {}", listed(allowed))
                                : "unknown key" + guess);
@@ -61,7 +75,7 @@ void report_unknown(const YamlNode::Member& member, const Rule& rule, Problems& 
 void report_missing(const YamlNode& node, const Rule& member, Problems& problems) {
     std::string form = member.meaning;
     if (member.kind == Kind::quantity || member.kind == Kind::quantities)
-        form += fmt::format("; for example {}: {}", member.key, example(member.dimension));
+        form += "; for example " + example(member.dimension);
     problems.add(node.at, node.path,
                  fmt::format("the key {} is missing ({})", quoted(member.key), form));
 }
@@ -72,7 +86,8 @@ Entry default_entry(const YamlNode& parent, const Rule& rule) {
     node.path = (parent.path.empty() ? "" : parent.path + ".") + rule.key;
     const bool is_map = rule.default_text == "{}";
     node.kind = is_map ? YamlNode::Kind::map : YamlNode::Kind::scalar;
-    if (!is_map) node.text = rule.default_text;
+    if (!is_map)
+        node.text = rule.default_text;
     Problems none;
     Entry entry = check(node, rule, none);
     none.throw_if_any();
@@ -80,21 +95,32 @@ Entry default_entry(const YamlNode& parent, const Rule& rule) {
     return entry;
 }
 
+/// Whether the key is named by the refusal of another one that stands in its place ("give
+/// spacing"): then its absence goes without saying.
+bool is_named_by_refusal(const YamlNode& node, const Rule& rule, const std::string& key) {
+    for (const Rule& later : rule.members)
+        if (node.find(later.key) && later.later.find("give " + key) != std::string::npos)
+            return true;
+    return false;
+}
+
 void check_map(const YamlNode& node, const Rule& rule, Entry& entry, Problems& problems) {
     for (const YamlNode::Member& member : node.members) {
         const Rule* known = rule.member(member.key);
         if (!known)
-            report_unknown(member, rule, problems);
+            report_unknown(node, member, rule, problems);
         else if (!known->later.empty())
             problems.add(member.key_at, member.value.path, "not available yet: " + known->later);
     }
     for (const Rule& member : rule.members) {
-        if (!member.later.empty()) continue;
+        if (!member.later.empty())
+            continue;
         if (const YamlNode* value = node.find(member.key))
             entry.members.emplace_back(member.key, check(*value, member, problems));
-        else if (member.is_required)
+        else if (member.is_required && !node.is_damaged &&
+                 !is_named_by_refusal(node, rule, member.key))
             report_missing(node, member, problems);
-        else if (!member.default_text.empty())
+        if (!node.find(member.key) && !member.default_text.empty())
             entry.members.emplace_back(member.key, default_entry(node, member));
     }
 }
@@ -117,7 +143,8 @@ void check_items(const YamlNode& node, const Rule& rule, Entry& entry, Problems&
     for (const YamlNode& item : node.items) {
         entry.items.push_back(check(item, rule.members[0], problems));
         const YamlNode* name = item.find("name");
-        if (!name || !name->is_scalar()) continue;
+        if (!name || !name->is_scalar())
+            continue;
         for (const auto& [used, line] : names)
             if (used == name->text)
                 problems.add(name->at, name->path,
@@ -132,8 +159,10 @@ const Rule* alternative(const YamlNode& node, const Rule& rule, Problems& proble
     const YamlNode* selector = node.find(rule.selector);
     std::vector<std::string> words;
     for (const Rule& choice : rule.members) {
-        if (choice.key == (selector ? "*" : "")) return &choice;
-        if (selector && choice.key == selector->text) return &choice;
+        if (choice.key == (selector ? "*" : ""))
+            return &choice;
+        if (selector && choice.key == selector->text)
+            return &choice;
         words.push_back(choice.key);
     }
     if (selector)
@@ -149,11 +178,11 @@ void check_quantities(const YamlNode& node, const Rule& rule, Entry& entry, Prob
     const std::size_t count = node.is_list() ? node.items.size() : 1;
     if (count < rule.least_items || count > rule.most_items) {
         const char* form = rule.least_items == 2 ? "two lengths [x, y]" : "one length or [x, y]";
-        problems.add(node.at, node.path,
-                     fmt::format("{} stands where {} is due",
-                                 node.is_list() ? fmt::format("a list of {}", count)
-                                                : what_it_is(node),
-                                 form));
+        problems.add(
+            node.at, node.path,
+            fmt::format("{} stands where {} is due",
+                        node.is_list() ? fmt::format("a list of {}", count) : what_it_is(node),
+                        form));
         return;
     }
     entry.is_good = true;
@@ -161,10 +190,13 @@ void check_quantities(const YamlNode& node, const Rule& rule, Entry& entry, Prob
         const YamlNode& one = node.is_list() ? node.items[i] : node;
         const auto value = read_quantity(one, rule.dimension, rule.range, problems);
         entry.is_good = entry.is_good && value.has_value();
-        if (value) entry.numbers.push_back(*value);
-        if (node.is_list()) entry.text += (i ? ", " : "[") + one.text;
+        if (value)
+            entry.numbers.push_back(*value);
+        if (node.is_list())
+            entry.text += (i ? ", " : "[") + one.text;
     }
-    if (node.is_list()) entry.text += "]";
+    if (node.is_list())
+        entry.text += "]";
 }
 
 void check_word(const YamlNode& node, const Rule& rule, Entry& entry, Problems& problems) {
@@ -178,8 +210,9 @@ void check_word(const YamlNode& node, const Rule& rule, Entry& entry, Problems& 
 }
 
 void check_structure(const YamlNode& node, const Rule& rule, Entry& entry, Problems& problems) {
-    if (!is_structure(node, rule, problems)) return;
-    entry.is_good = true;
+    if (!is_structure(node, rule, problems))
+        return;
+    entry.is_good = !node.is_damaged;
     if (rule.kind == Kind::list)
         check_items(node, rule, entry, problems);
     else if (rule.kind == Kind::dictionary)
@@ -193,32 +226,50 @@ void check_structure(const YamlNode& node, const Rule& rule, Entry& entry, Probl
 const Entry& Entry::operator[](const std::string& key) const {
     static const Entry absent;
     for (const auto& [name, entry] : members)
-        if (name == key) return entry;
+        if (name == key)
+            return entry;
     return absent;
 }
 
 Entry check(const YamlNode& node, const Rule& rule, Problems& problems) {
     Entry entry = entry_for(node, rule);
     switch (rule.kind) {
+    case Kind::sentence: // numbers in it are judged by whoever reads the sentence
+        entry.is_good = node.is_scalar() || read_text(node, problems).has_value();
+        break;
     case Kind::text:
-    case Kind::sentence: entry.is_good = read_text(node, problems).has_value(); break;
-    case Kind::word: check_word(node, rule, entry, problems); break;
-    case Kind::integer: store(entry, read_integer(node, rule.range, problems)); break;
-    case Kind::number: store(entry, read_number(node, rule.range, problems)); break;
-    case Kind::truth: store(entry, read_truth(node, problems)); break;
+        entry.is_good = read_text(node, problems).has_value();
+        break;
+    case Kind::word:
+        check_word(node, rule, entry, problems);
+        break;
+    case Kind::integer:
+        store(entry, read_integer(node, rule.range, problems));
+        break;
+    case Kind::number:
+        store(entry, read_number(node, rule.range, problems));
+        break;
+    case Kind::truth:
+        store(entry, read_truth(node, problems));
+        break;
     case Kind::quantity:
         store(entry, read_quantity(node, rule.dimension, rule.range, problems));
         break;
-    case Kind::quantities: check_quantities(node, rule, entry, problems); break;
+    case Kind::quantities:
+        check_quantities(node, rule, entry, problems);
+        break;
     case Kind::anything:
         entry.raw = node;
         entry.is_good = true;
         break;
     case Kind::map:
     case Kind::list:
-    case Kind::dictionary: check_structure(node, rule, entry, problems); break;
+    case Kind::dictionary:
+        check_structure(node, rule, entry, problems);
+        break;
     case Kind::alternatives:
-        if (!is_structure(node, rule, problems)) break;
+        if (!is_structure(node, rule, problems))
+            break;
         if (const Rule* choice = alternative(node, rule, problems))
             return check(node, *choice, problems);
         break;

@@ -13,12 +13,12 @@ namespace rille::engine {
 /// so that whoever builds from entries never asks what was written.
 struct Entry {
     const Rule* rule = nullptr;
-    bool is_given = false;  ///< written by the user
-    bool is_good = false;   ///< holds a value (given or default); false: absent or already reported
+    bool is_given = false; ///< written by the user
+    bool is_good = false;  ///< holds a value (given or default); false: absent or already reported
     Location at;
     std::string path;
-    std::string text;       ///< scalars as written
-    double number = 0;      ///< integer, number, quantity in inside units; truth 0 or 1
+    std::string text;            ///< scalars as written
+    double number = 0;           ///< integer, number, quantity in inside units; truth 0 or 1
     std::vector<double> numbers; ///< quantities
     std::vector<std::pair<std::string, Entry>> members; ///< map, dictionary, alternatives
     std::vector<Entry> items;                           ///< list

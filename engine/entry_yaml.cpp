@@ -16,11 +16,14 @@ std::string scalar(const std::string& text) {
                  other_reading(text).empty() && text.back() != ' ' && text.back() != ':' &&
                  text.find_first_of("\n\t\"\\,[]{}") == std::string::npos &&
                  text.find(": ") == std::string::npos && text.find('#') == std::string::npos;
-    if (text.size() > 1 && text[0] == '-' && text[1] >= '0' && text[1] <= '9') plain = true;
-    if (plain) return text;
+    if (text.size() > 1 && text[0] == '-' && text[1] >= '0' && text[1] <= '9')
+        plain = true;
+    if (plain)
+        return text;
     std::string result = "\"";
     for (const char c : text) {
-        if (c == '"' || c == '\\') result += '\\';
+        if (c == '"' || c == '\\')
+            result += '\\';
         if (c == '\n')
             result += "\\n";
         else if (c == '\t')
@@ -34,8 +37,10 @@ std::string scalar(const std::string& text) {
 std::string raw_yaml(const YamlNode& node) {
     std::string text;
     switch (node.kind) {
-    case YamlNode::Kind::empty: return "\"\"";
-    case YamlNode::Kind::scalar: return scalar(node.text);
+    case YamlNode::Kind::empty:
+        return "\"\"";
+    case YamlNode::Kind::scalar:
+        return scalar(node.text);
     case YamlNode::Kind::list:
         for (const YamlNode& item : node.items)
             text += (text.empty() ? "" : ", ") + raw_yaml(item);
@@ -50,24 +55,34 @@ std::string raw_yaml(const YamlNode& node) {
 
 void write(const Entry& entry, const std::string& indent, std::string& out);
 
-bool is_block(const Entry& entry) { return !entry.members.empty() || !entry.items.empty(); }
+bool is_block(const Entry& entry) {
+    return !entry.members.empty() || !entry.items.empty();
+}
 
 std::string inline_text(const Entry& entry) {
     switch (entry.rule->kind) {
-    case Kind::anything: return raw_yaml(entry.raw);
-    case Kind::quantities: return entry.text; // "60 nm" or "[60 nm, 80 nm]"
-    case Kind::list: return "[]";
+    case Kind::anything:
+        return raw_yaml(entry.raw);
+    case Kind::truth:
+        return entry.text;
+    case Kind::quantities:
+        return entry.text; // "60 nm" or "[60 nm, 80 nm]"
+    case Kind::list:
+        return "[]";
     case Kind::map:
     case Kind::dictionary:
-    case Kind::alternatives: return "{}";
-    default: return scalar(entry.text);
+    case Kind::alternatives:
+        return "{}";
+    default:
+        return scalar(entry.text);
     }
 }
 
 void write_members(const Entry& entry, const std::string& indent, std::string& out) {
     bool first = true;
     for (const auto& [key, value] : entry.members) {
-        if (!first) out += indent;
+        if (!first)
+            out += indent;
         first = false;
         out += scalar(key) + ":";
         if (is_block(value)) {
@@ -87,7 +102,8 @@ void write(const Entry& entry, const std::string& indent, std::string& out) {
     }
     bool first = true;
     for (const Entry& item : entry.items) {
-        if (!first) out += indent;
+        if (!first)
+            out += indent;
         first = false;
         out += "- ";
         if (is_block(item))

@@ -12,8 +12,8 @@
 namespace rille::engine {
 namespace {
 
-constexpr double no_film_nm = 1e-9;        // thinner grown film counts as none
-constexpr double just_inside = 1e-3;       // [cells] where the material below the front is read
+constexpr double no_film_nm = 1e-9;  // thinner grown film counts as none
+constexpr double just_inside = 1e-3; // [cells] where the material below the front is read
 constexpr double seconds_per_minute = 60;
 
 /// Film and outermost material of every element.
@@ -28,7 +28,8 @@ void fill_materials(SurfaceState& state, const Case& c) {
         for (std::size_t f = state.grown.material.size(); f-- > 0;) {
             const double thickness = state.grown.thickness[f][e];
             grown += thickness;
-            if (outermost < 0 && thickness > no_film_nm) outermost = state.grown.material[f];
+            if (outermost < 0 && thickness > no_film_nm)
+                outermost = state.grown.material[f];
         }
         const double depth = grown + just_inside * c.domain.spacing;
         state.film[e] = stack.film_at(s.centre[e].z - s.normal[e].z * depth);
@@ -39,7 +40,8 @@ void fill_materials(SurfaceState& state, const Case& c) {
 void add_field(SurfaceState& state, const std::string& name, const std::string& unit,
                const std::function<double(std::size_t)>& value) {
     NamedField field{name, unit, std::vector<double>(state.surface.size())};
-    for (std::size_t e = 0; e < field.value.size(); ++e) field.value[e] = value(e);
+    for (std::size_t e = 0; e < field.value.size(); ++e)
+        field.value[e] = value(e);
     state.fields.push_back(std::move(field));
 }
 
@@ -47,11 +49,13 @@ void add_field(SurfaceState& state, const std::string& name, const std::string& 
 void add_coverages(SurfaceState& state, const Case& c, const fluxes::SurfaceStep& step) {
     const auto& surfaces = c.mechanism.surfaces;
     std::set<std::string> names;
-    for (const auto& chemistry : surfaces) names.insert(chemistry.coverages.begin(), chemistry.coverages.end());
+    for (const auto& chemistry : surfaces)
+        names.insert(chemistry.coverages.begin(), chemistry.coverages.end());
     for (const std::string& name : names)
         add_field(state, "coverage_" + name, "1", [&](std::size_t e) {
             const auto material = static_cast<std::size_t>(state.material[e]);
-            if (material >= surfaces.size()) return 0.0;
+            if (material >= surfaces.size())
+                return 0.0;
             const auto& known = surfaces[material].coverages;
             const auto at = std::find(known.begin(), known.end(), name);
             return at == known.end() ? 0.0 : step.response[e].coverage[at - known.begin()];
@@ -78,7 +82,8 @@ void fill_state(SurfaceState& state, const Case& c, const fluxes::SurfaceStep& s
     RILLE_CHECK(step.response.size() == n, "the step was solved on another surface");
     fill_materials(state, c);
     state.rate.resize(n);
-    for (std::size_t e = 0; e < n; ++e) state.rate[e] = step.response[e].rate;
+    for (std::size_t e = 0; e < n; ++e)
+        state.rate[e] = step.response[e].rate;
     state.fields.clear();
     for (std::size_t i = 0; i < step.ion_flux.size(); ++i)
         add_field(state, "ion_flux_" + c.mechanism.ions.at(i), "per_nm2_s",

@@ -11,11 +11,12 @@ constexpr double seconds_per_minute = 60;
 
 /// Headers and values are written by one walk over the columns, so that they cannot part.
 class Line {
-  public:
+public:
     Line(bool header) : header_(header) {}
 
     void add(const std::string& name, const std::string& value) {
-        if (!text_.empty()) text_ += ',';
+        if (!text_.empty())
+            text_ += ',';
         text_ += header_ ? name : csv_field(value);
     }
     void add(const std::string& name, double value) { add(name, shortest(value)); }
@@ -27,7 +28,7 @@ class Line {
     }
     std::string text() const { return text_ + '\n'; }
 
-  private:
+private:
     bool header_;
     std::string text_;
 };
@@ -73,7 +74,8 @@ std::string line_of(const Case& c, const HistoryRow& row, bool header) {
 
 std::string history_csv(const Case& c, const std::vector<HistoryRow>& rows) {
     std::string text = line_of(c, HistoryRow(), true);
-    for (const HistoryRow& row : rows) text += line_of(c, row, false);
+    for (const HistoryRow& row : rows)
+        text += line_of(c, row, false);
     return text;
 }
 

@@ -20,18 +20,18 @@ struct FeatureRow {
 
 /// One refresh of the arrivals and the advance that used it.
 struct HistoryRow {
-    double time_s = 0;       ///< since the start of the run, at the end of this advance
-    std::string step;        ///< recipe step
-    double step_time_s = 0;  ///< since the start of the recipe step
+    double time_s = 0;      ///< since the start of the run, at the end of this advance
+    std::string step;       ///< recipe step
+    double step_time_s = 0; ///< since the start of the recipe step
     double time_step_s = 0;
     int sub_steps = 0;
     std::vector<FeatureRow> features; ///< per opening of the mask
-    double highest_rate = 0; ///< [nm/s] fastest etching on the front
-    double lowest_rate = 0;  ///< [nm/s] slowest, < 0 where a film grows
+    double highest_rate = 0;          ///< [nm/s] fastest etching on the front
+    double lowest_rate = 0;           ///< [nm/s] slowest, < 0 where a film grows
     int elements = 0;
-    int iterations = 0;      ///< of transport and kinetics
-    double residual = 0;     ///< largest change of a sticking probability in the last iteration
-    double largest_move = 0; ///< [cells]
+    int iterations = 0;          ///< of transport and kinetics
+    double residual = 0;         ///< largest change of a sticking probability in the last iteration
+    double largest_move = 0;     ///< [cells]
     double redistance_shift = 0; ///< [cells] largest so far
     std::uint64_t rays = 0;      ///< traced so far
     std::uint64_t lost_rays = 0; ///< lost so far

@@ -16,7 +16,8 @@ using Kind = Rule::Kind;
 std::string escaped(const std::string& unit) {
     std::string result;
     for (const char c : unit) {
-        if (std::string("/().^+$*?[]{}|\\").find(c) != std::string::npos) result += '\\';
+        if (std::string("/().^+$*?[]{}|\\").find(c) != std::string::npos)
+            result += '\\';
         result += c;
     }
     return result;
@@ -37,7 +38,8 @@ std::string description(const Rule& rule) {
         const std::string range = range_text(rule.range, rule.dimension);
         text += range.empty() ? "]" : "; " + range + "]";
     }
-    if (!rule.form.empty()) text += " [" + rule.form + "]";
+    if (!rule.form.empty())
+        text += " [" + rule.form + "]";
     if (!rule.default_text.empty() && rule.default_text != "{}")
         text += " (default " + rule.default_text + ")";
     return text;
@@ -50,12 +52,15 @@ Json map_schema(const Rule& rule) {
     Json properties = Json::object();
     Json required = Json::array();
     for (const Rule& member : rule.members) {
-        if (!member.later.empty()) continue;
+        if (!member.later.empty())
+            continue;
         properties[member.key] = schema_of(member);
-        if (member.is_required) required.push_back(member.key);
+        if (member.is_required)
+            required.push_back(member.key);
     }
     schema["properties"] = properties;
-    if (!required.empty()) schema["required"] = required;
+    if (!required.empty())
+        schema["required"] = required;
     return schema;
 }
 
@@ -74,30 +79,41 @@ Json quantities_schema(const Rule& rule) {
                        {"items", one},
                        {"minItems", rule.least_items},
                        {"maxItems", rule.most_items}};
-    if (rule.least_items > 1) return list;
+    if (rule.least_items > 1)
+        return list;
     return {{"anyOf", Json::array({one, list})}};
 }
 
 Json form_of(const Rule& rule) {
     switch (rule.kind) {
-    case Kind::text: return {{"type", "string"}};
-    case Kind::word: return {{"enum", rule.words}};
-    case Kind::sentence: return {{"type", "string"}, {"pattern", rule.pattern}};
-    case Kind::integer: return bounded(rule, "integer");
-    case Kind::number: return bounded(rule, "number");
-    case Kind::truth: return {{"type", "boolean"}};
+    case Kind::text:
+        return {{"type", "string"}};
+    case Kind::word:
+        return {{"enum", rule.words}};
+    case Kind::sentence:
+        return {{"type", "string"}, {"pattern", rule.pattern}};
+    case Kind::integer:
+        return bounded(rule, "integer");
+    case Kind::number:
+        return bounded(rule, "number");
+    case Kind::truth:
+        return {{"type", "boolean"}};
     case Kind::quantity:
         return {{"type", "string"}, {"pattern", quantity_pattern(rule.dimension)}};
-    case Kind::quantities: return quantities_schema(rule);
-    case Kind::anything: return Json::object();
-    case Kind::map: return map_schema(rule);
+    case Kind::quantities:
+        return quantities_schema(rule);
+    case Kind::anything:
+        return Json::object();
+    case Kind::map:
+        return map_schema(rule);
     case Kind::list:
         return {{"type", "array"},
                 {"minItems", rule.least_items},
                 {"items", schema_of(rule.members[0])}};
     case Kind::dictionary:
         return {{"type", "object"}, {"additionalProperties", schema_of(rule.members[0])}};
-    case Kind::alternatives: break;
+    case Kind::alternatives:
+        break;
     }
     Json choices = Json::array();
     for (const Rule& choice : rule.members)
@@ -108,7 +124,8 @@ Json form_of(const Rule& rule) {
 Json schema_of(const Rule& rule) {
     Json schema = form_of(rule);
     const std::string text = description(rule);
-    if (!text.empty()) schema["description"] = text;
+    if (!text.empty())
+        schema["description"] = text;
     return schema;
 }
 

@@ -21,7 +21,7 @@ struct Metric {
     std::string name;    ///< "depth centre", "bottom cd", "stop loss"
     std::string feature; ///< the opening's name
     std::optional<double> value;
-    std::string unit;    ///< nm, deg, 1
+    std::string unit;          ///< nm, deg, 1
     double sampling_error = 0; ///< 95 %, same unit; 0 where nothing is sampled
     std::string definition;
     std::string note;

@@ -20,7 +20,7 @@ struct OutputError : std::runtime_error {
 /// The folder that a run leaves. Every file is written whole or not at all: under a temporary name
 /// beside its place, then renamed.
 class OutputFolder {
-  public:
+public:
     enum class Existing { refuse, force };
 
     /// Creates the folder (and its parents) and proves that it can be written, before anything is
@@ -38,7 +38,7 @@ class OutputFolder {
     /// Names of the files written so far, sorted.
     std::vector<std::string> written() const;
 
-  private:
+private:
     void note(const std::string& name);
 
     std::string path_;

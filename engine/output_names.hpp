@@ -11,8 +11,8 @@ inline constexpr const char* profile = "profile.csv";
 inline constexpr const char* metrics = "metrics.json";
 inline constexpr const char* series = "front.pvd";
 inline constexpr const char* level_set = "front.vdb";
-inline constexpr const char* picture_svg = "picture.svg";
-inline constexpr const char* picture_png = "picture.png";
+inline constexpr const char* picture_svg = "profile.svg";
+inline constexpr const char* picture_png = "profile.png";
 inline constexpr const char* frames = "frames";
 inline constexpr const char* all[] = {resolved_case, record,    history,     profile,    metrics,
                                       series,        level_set, picture_svg, picture_png};

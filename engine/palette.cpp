@@ -28,9 +28,11 @@ constexpr std::array<Entry, 8> table = {{
 }};
 
 bool names(const std::string& material, const char* name) {
-    if (!name) return false;
+    if (!name)
+        return false;
     const std::string word = name;
-    if (material == word) return true;
+    if (material == word)
+        return true;
     return word.size() > 4 && material.find(word) != std::string::npos;
 }
 
@@ -65,7 +67,8 @@ std::vector<MaterialLook> material_looks(const std::vector<std::string>& materia
 }
 
 std::string hatch_pattern(const std::string& id, const MaterialLook& look) {
-    if (look.hatch == 0) return "";
+    if (look.hatch == 0)
+        return "";
     const std::string ink = lightness(look.colour) > 50 ? "#000000" : "#ffffff";
     const auto stroke = [&](const std::string& data) {
         return "<path d=\"" + data + "\" stroke=\"" + ink +
@@ -77,17 +80,19 @@ std::string hatch_pattern(const std::string& id, const MaterialLook& look) {
     static const std::array<const char*, 8> lines = {
         "",
         "",
-        "M0 10L10 0M-1 1L1 -1M9 11L11 9",          // rising
-        "M0 0L10 10M-1 9L1 11M9 -1L11 1",          // falling
-        "M0 5L10 5",                               // level
-        "M0 10L10 0M0 0L10 10",                    // crossed
-        "M5 0L5 10",                               // upright
-        "M0 2.5L5 2.5M5 7.5L10 7.5",               // broken
+        "M0 10L10 0M-1 1L1 -1M9 11L11 9", // rising
+        "M0 0L10 10M-1 9L1 11M9 -1L11 1", // falling
+        "M0 5L10 5",                      // level
+        "M0 10L10 0M0 0L10 10",           // crossed
+        "M5 0L5 10",                      // upright
+        "M0 2.5L5 2.5M5 7.5L10 7.5",      // broken
     };
-    const std::string drawing = look.hatch == 1 ? dots("cx=\"2.5\" cy=\"2.5\"") + dots("cx=\"7.5\" cy=\"7.5\"")
-                                                : stroke(lines.at(look.hatch));
-    return "<pattern id=\"" + id + "\" width=\"10\" height=\"10\" patternUnits=\"userSpaceOnUse\">" +
-           drawing + "</pattern>";
+    const std::string drawing = look.hatch == 1
+                                    ? dots("cx=\"2.5\" cy=\"2.5\"") + dots("cx=\"7.5\" cy=\"7.5\"")
+                                    : stroke(lines.at(look.hatch));
+    return "<pattern id=\"" + id +
+           "\" width=\"10\" height=\"10\" patternUnits=\"userSpaceOnUse\">" + drawing +
+           "</pattern>";
 }
 
 double lightness(const std::string& colour) {

@@ -21,7 +21,8 @@ using Draw = std::function<double(Svg&, double, double)>; ///< draws at (x, y), 
 
 /// At most most_fronts of them: the first, the last, and even steps between.
 std::vector<PictureFront> chosen_fronts(const std::vector<PictureFront>& all) {
-    if (all.size() <= most_fronts) return all;
+    if (all.size() <= most_fronts)
+        return all;
     std::vector<PictureFront> chosen;
     for (std::size_t i = 0; i < most_fronts; ++i)
         chosen.push_back(all[i * (all.size() - 1) / (most_fronts - 1)]);
@@ -41,7 +42,8 @@ View make_view(const PictureContext& p) {
             }
     };
     include(p.profile);
-    for (const PictureFront& front : p.fronts) include(front.section);
+    for (const PictureFront& front : p.fronts)
+        include(front.section);
     const double extent = std::max(high - low, 0.1 * (v.x_max - v.x_min));
     v.z_low = low - 0.14 * extent;
     v.z_high = high + 0.06 * extent;
@@ -51,7 +53,8 @@ View make_view(const PictureContext& p) {
     if (v.width() >= landscape_from) // the panel goes below: leave it room
         v.scale_x = v.scale_z = std::min(560 / height, widest / width);
     const double stretch = std::ceil(narrowest / v.width() - 1e-9);
-    if (v.width() < 0.7 * narrowest) v.scale_x *= stretch;
+    if (v.width() < 0.7 * narrowest)
+        v.scale_x *= stretch;
     v.left = margin + axis_room;
     v.top = head;
     return v;
@@ -60,8 +63,9 @@ View make_view(const PictureContext& p) {
 double film_column_room(const PictureContext& p) {
     double room = 0;
     for (const geometry::Film& film : p.c.films)
-        room = std::max(room, text_width(film.name + ", " + p.c.materials.at(film.material) +
-                                             " 0000 nm", {11, Anchor::start, false, "", false, 0}));
+        room = std::max(room,
+                        text_width(film.name + ", " + p.c.materials.at(film.material) + " 0000 nm",
+                                   {11, Anchor::start, false, "", false, 0}));
     return std::min(room, 240.0) + 36;
 }
 
@@ -76,15 +80,19 @@ double draw_measured(Svg& svg, const PictureContext& p, double x, double y) {
     double at = y + heading(svg, x, y, "Measured");
     int rows = 0;
     for (const Metric& m : p.metrics.metrics) {
-        if (!m.value || m.name.find("cd_change") != std::string::npos) continue;
+        if (!m.value || m.name.find("cd_change") != std::string::npos)
+            continue;
         if (++rows > 22) {
-            svg.text(x, at, "more in metrics.json", {11, Anchor::start, false, "#555555", false, 0});
+            svg.text(x, at, "more in metrics.json",
+                     {11, Anchor::start, false, "#555555", false, 0});
             at += 17;
             break;
         }
         std::string name = m.name;
-        for (std::size_t cd = name.find("cd"); cd != std::string::npos; cd = name.find("cd", cd + 2))
-            if (name != "cd_change") name.replace(cd, 2, "CD");
+        for (std::size_t cd = name.find("cd"); cd != std::string::npos;
+             cd = name.find("cd", cd + 2))
+            if (name != "cd_change")
+                name.replace(cd, 2, "CD");
         const std::string unit = m.unit == "1" ? "" : m.unit == "deg" ? "°" : " " + m.unit;
         svg.text(x, at, several ? m.feature + ": " + name : name,
                  {11.5, Anchor::start, false, "#222222", false, 0});
@@ -111,10 +119,15 @@ double draw_targets(Svg& svg, const PictureContext& p, double x, double y) {
         const bool several = p.c.mask.openings.size() > 1 && !v.feature.empty();
         svg.text(x, at, several ? v.feature + ": " + v.target : v.target,
                  {11.5, Anchor::start, false, "#222222", false, 0});
-        std::string verdict = verdict_name(v.verdict);
-        if (v.by_numbers != v.verdict) // the parameters keep it open
-            verdict += std::string(" (") + verdict_name(v.by_numbers) + " by the numbers)";
-        svg.text(x + panel_width, at, verdict, {11.5, Anchor::end, true, "#222222", false, 0});
+        svg.text(x + panel_width, at, verdict_name(v.verdict),
+                 {11.5, Anchor::end, true, "#222222", false, 0});
+        if (v.by_numbers != v.verdict) { // the parameters keep it open
+            at += 14;
+            svg.text(x + panel_width, at,
+                     std::string(verdict_name(v.by_numbers)) +
+                         " by the numbers; parameters illustrative or from memory",
+                     {10, Anchor::end, false, "#555555", false, 0});
+        }
         at += 17;
     }
     return at - y;
@@ -124,7 +137,8 @@ double draw_materials(Svg& svg, const PictureContext& p, double x, double y) {
     double at = y + heading(svg, x, y, "Materials");
     std::vector<int> shown;
     const auto show = [&](int material, const std::string& note) {
-        if (std::find(shown.begin(), shown.end(), material) != shown.end()) return;
+        if (std::find(shown.begin(), shown.end(), material) != shown.end())
+            return;
         shown.push_back(material);
         const Box swatch{x, at - 11, 26, 14};
         const std::string edge = "stroke=\"#000000\" stroke-width=\"0.6\"";
@@ -136,7 +150,8 @@ double draw_materials(Svg& svg, const PictureContext& p, double x, double y) {
                  {11.5, Anchor::start, false, "#222222", false, 0});
         at += 20;
     };
-    for (const geometry::Film& film : p.c.films) show(film.material, "");
+    for (const geometry::Film& film : p.c.films)
+        show(film.material, "");
     for (std::size_t f = 0; f < p.last.grown.material.size(); ++f) {
         const auto& thickness = p.last.grown.thickness[f];
         if (std::any_of(thickness.begin(), thickness.end(), [](double t) { return t > 1e-3; }))
@@ -157,7 +172,8 @@ double draw_times(Svg& svg, const PictureContext& p, double x, double y) {
                       : fmt::format("stroke=\"{}\" stroke-width=\"1.4\"{}", front_colour(f, count),
                                     f == 0 ? " stroke-dasharray=\"5 3\"" : ""));
         svg.text(column + 36, row,
-                 f == 0 && count > 1 ? "start" : time_text(p.fronts[f].time_s) + (last ? " (end)" : ""),
+                 f == 0 && count > 1 ? "start"
+                                     : time_text(p.fronts[f].time_s) + (last ? " (end)" : ""),
                  {11.5, Anchor::start, last, "#222222", false, 0});
     }
     return at + rows * 18.0 + 4 - y;
@@ -171,9 +187,11 @@ double draw_plan(Svg& svg, const PictureContext& p, double x, double y) {
     const double middle = depth && depth->value ? -0.5 * *depth->value : -d.spacing;
     const Box frame{x, at - 10, d.width_x() * scale, d.width_y() * scale};
     svg.rect(frame, "fill=\"none\" stroke=\"#555555\" stroke-width=\"0.8\"");
-    const std::pair<double, const char*> cuts[] = {{0.0, "stroke=\"#000000\" stroke-width=\"1.8\""},
-                                                   {middle, "stroke=\"#2b6cb0\" stroke-width=\"1.8\" "
-                                                            "stroke-dasharray=\"6 3\""}};
+    // Half a cell up, in the mask: an unetched floor lies at z = 0 itself.
+    const std::pair<double, const char*> cuts[] = {
+        {0.5 * d.spacing, "stroke=\"#000000\" stroke-width=\"1.8\""},
+        {middle, "stroke=\"#2b6cb0\" stroke-width=\"1.8\" "
+                 "stroke-dasharray=\"6 3\""}};
     for (const auto& [z, style] : cuts)
         for (const SectionLine& line : horizontal_section(p.last.surface, z)) {
             auto points = line.points;
@@ -204,8 +222,10 @@ double fitting(const std::string& text, double size, bool bold, double width) {
 
 std::string subtitle(const PictureContext& p) {
     std::string text = "after " + time_text(p.last.time_s);
-    if (!p.c.chemistry.empty()) text += " · " + p.c.chemistry;
-    if (!p.c.domain.extruded()) text += " · section at y = " + rounded(section_y(p.c), 20) + " nm";
+    if (!p.c.chemistry.empty())
+        text += " · " + p.c.chemistry;
+    if (!p.c.domain.extruded())
+        text += " · section at y = " + rounded(section_y(p.c), 20) + " nm";
     return text + " · spacing " + rounded(p.c.domain.spacing) + " nm";
 }
 
@@ -241,20 +261,23 @@ std::vector<Draw> panel_parts(const PictureContext& p) {
 
 std::string front_colour(std::size_t index, std::size_t count) {
     const double t = count > 1 ? static_cast<double>(index) / static_cast<double>(count - 1) : 1;
-    const auto mix = [t](int light, int dark) { return static_cast<int>(std::lround(light + t * (dark - light))); };
+    const auto mix = [t](int light, int dark) {
+        return static_cast<int>(std::lround(light + t * (dark - light)));
+    };
     return fmt::format("#{:02x}{:02x}{:02x}", mix(0x9f, 0x10), mix(0xb4, 0x24), mix(0xd8, 0x60));
 }
 
 std::string time_text(double seconds) {
-    return fmt::format(seconds < 100 && std::fabs(seconds - std::round(seconds)) > 0.005 ? "{:.1f} s"
-                                                                                        : "{:.0f} s",
-                       seconds);
+    return fmt::format(
+        seconds < 100 && std::fabs(seconds - std::round(seconds)) > 0.005 ? "{:.1f} s" : "{:.0f} s",
+        seconds);
 }
 
 double round_length(double value) {
     const double power = std::pow(10.0, std::floor(std::log10(value)));
     for (const double step : {5.0, 2.0})
-        if (value / power >= step) return step * power;
+        if (value / power >= step)
+            return step * power;
     return power;
 }
 
@@ -275,7 +298,8 @@ std::string picture_svg(const Case& c, const std::vector<PictureFront>& fronts,
     // The parts' heights are known only by drawing them: once on a scratch page.
     Svg scratch(1, 1, "");
     std::vector<double> heights;
-    for (const Draw& part : parts) heights.push_back(part(scratch, 0, 0));
+    for (const Draw& part : parts)
+        heights.push_back(part(scratch, 0, 0));
     double total = 0, highest = 0;
     for (const double height : heights) {
         total += height + 14;
@@ -284,10 +308,10 @@ std::string picture_svg(const Case& c, const std::vector<PictureFront>& fronts,
     const double columns = static_cast<double>(parts.size());
     const double panel_x = landscape ? margin : section_right + panel_gap;
     const double panel_y = landscape ? v.bottom() + 66 : v.top;
-    const double width = landscape ? std::max(section_right + margin,
-                                              2 * margin + columns * panel_width +
-                                                  (columns - 1) * panel_gap)
-                                   : panel_x + panel_width + margin;
+    const double width = landscape
+                             ? std::max(section_right + margin, 2 * margin + columns * panel_width +
+                                                                    (columns - 1) * panel_gap)
+                             : panel_x + panel_width + margin;
     const double height =
         (landscape ? panel_y + highest : std::max(v.bottom() + 56, panel_y + total)) + 44;
     Svg svg(std::ceil(width), std::ceil(height), c.title);
@@ -300,8 +324,10 @@ std::string picture_svg(const Case& c, const std::vector<PictureFront>& fronts,
     double x = panel_x, y = panel_y;
     for (std::size_t i = 0; i < parts.size(); ++i) {
         parts[i](svg, x, y);
-        if (landscape) x += panel_width + panel_gap;
-        else y += heights[i] + 14;
+        if (landscape)
+            x += panel_width + panel_gap;
+        else
+            y += heights[i] + 14;
     }
     draw_head_and_foot(svg, p);
     return svg.finish();

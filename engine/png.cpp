@@ -16,7 +16,8 @@ struct Release {
     void operator()(cairo_t* context) const { cairo_destroy(context); }
     void operator()(GError* error) const { g_error_free(error); }
 };
-template <class T> using Owned = std::unique_ptr<T, Release>;
+template <class T>
+using Owned = std::unique_ptr<T, Release>;
 
 cairo_status_t append(void* target, const unsigned char* data, unsigned int length) {
     static_cast<std::string*>(target)->append(reinterpret_cast<const char*>(data), length);
@@ -24,7 +25,8 @@ cairo_status_t append(void* target, const unsigned char* data, unsigned int leng
 }
 
 void check(bool fine, const GError* error, const char* otherwise) {
-    if (!fine) throw OutputError("picture", "cannot draw the page", error ? error->message : otherwise);
+    if (!fine)
+        throw OutputError("picture", "cannot draw the page", error ? error->message : otherwise);
 }
 
 } // namespace

@@ -39,6 +39,12 @@ void Problems::add(const Location& at, const std::string& path, const std::strin
     problems_.push_back({at.file, at.line, at.column, path, message});
 }
 
+bool Problems::any_at(const Location& at) const {
+    return std::any_of(problems_.begin(), problems_.end(), [&](const Problem& known) {
+        return known.file == at.file && known.line == at.line && known.column == at.column;
+    });
+}
+
 std::vector<Problem> Problems::sorted() const {
     std::map<std::string, int> order; // of first appearance
     for (const Problem& problem : problems_)

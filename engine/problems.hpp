@@ -42,6 +42,7 @@ private:
 class Problems {
 public:
     void add(const Location&, const std::string& path, const std::string& message);
+    bool any_at(const Location&) const; ///< something is said about that very place already
     bool empty() const { return problems_.empty(); }
     std::size_t size() const { return problems_.size(); }
     /// Ordered by position; a file's problems stay together, first file first, and problems of

@@ -13,15 +13,36 @@ namespace {
 constexpr double seconds_per_minute = 60;
 constexpr double degrees = 180 / 3.14159265358979323846;
 
-double element_error(const SurfaceState& state, std::size_t element) {
-    std::vector<double> deviation;
-    for (const auto& batch : state.displacement) deviation.push_back(batch[element]);
-    return sampling_error(deviation);
+/// Standard error of a mean from the deviations of its batches: SE^2 = sum w_b^2 / (B (B - 1)).
+double standard_error(double sum_of_squares, double batches) {
+    return std::sqrt(sum_of_squares / (batches * (batches - 1)));
+}
+
+/// Half-width of the 95 % interval in standard errors.
+double student_factor(double batches) {
+    const boost::math::students_t_distribution<double> student(batches - 1);
+    return boost::math::quantile(student, 0.975);
+}
+
+/// 95 % sampling error of every element's position; empty where nothing is sampled.
+std::vector<double> element_errors(const SurfaceState& state) {
+    const auto batches = static_cast<double>(state.displacement.size());
+    if (batches < 2)
+        return {};
+    const double factor = student_factor(batches);
+    std::vector<double> errors(state.surface.size(), 0.0);
+    for (const auto& batch : state.displacement)
+        for (std::size_t e = 0; e < errors.size(); ++e)
+            errors[e] += batch[e] * batch[e];
+    for (double& error : errors)
+        error = factor * standard_error(error, batches);
+    return errors;
 }
 
 std::string name_at(const std::vector<std::string>& names, const std::vector<int>& index,
                     std::size_t element) {
-    if (index.empty()) return "";
+    if (index.empty())
+        return "";
     const int i = index[element];
     return i >= 0 && i < static_cast<int>(names.size()) ? csv_field(names[i]) : "";
 }
@@ -45,7 +66,8 @@ std::string place(const Case& c, const SurfaceState& state, const std::vector<do
     const geometry::Vec3 p = s.centre[e], n = s.normal[e];
     std::string text = shortest(p.x);
     const auto add = [&](double value) { text += "," + shortest(value); };
-    if (!c.domain.extruded()) add(p.y);
+    if (!c.domain.extruded())
+        add(p.y);
     add(p.z);
     if (c.domain.extruded()) {
         add(arc[e]);
@@ -63,11 +85,12 @@ std::string place(const Case& c, const SurfaceState& state, const std::vector<do
 
 double sampling_error(const std::vector<double>& batch_deviation) {
     const double batches = static_cast<double>(batch_deviation.size());
-    if (batches < 2) return 0;
+    if (batches < 2)
+        return 0;
     double sum = 0;
-    for (const double w : batch_deviation) sum += w * w;
-    const boost::math::students_t_distribution<double> student(batches - 1);
-    return boost::math::quantile(student, 0.975) * std::sqrt(sum / (batches * (batches - 1)));
+    for (const double w : batch_deviation)
+        sum += w * w;
+    return student_factor(batches) * standard_error(sum, batches);
 }
 
 std::vector<double> arc_length(const geometry::Surface& s) {
@@ -75,7 +98,8 @@ std::vector<double> arc_length(const geometry::Surface& s) {
     double end = 0;
     for (std::size_t e = 0; e < s.size(); ++e) {
         // Elements of a chain are stored in walking order.
-        if (e > 0 && !s.chain.empty() && s.chain[e] != s.chain[e - 1]) end = 0;
+        if (e > 0 && !s.chain.empty() && s.chain[e] != s.chain[e - 1])
+            end = 0;
         arc[e] = end + 0.5 * s.area[e];
         end += s.area[e];
     }
@@ -84,19 +108,25 @@ std::vector<double> arc_length(const geometry::Surface& s) {
 
 std::string profile_csv(const Case& c, const SurfaceState& state) {
     std::vector<std::string> films;
-    for (const auto& film : c.films) films.push_back(film.name);
+    for (const auto& film : c.films)
+        films.push_back(film.name);
     const std::vector<double> arc =
         c.domain.extruded() ? arc_length(state.surface) : std::vector<double>();
+    const std::vector<double> errors = element_errors(state);
     std::string text = header(c, state);
     for (std::size_t e = 0; e < state.surface.size(); ++e) {
         text += place(c, state, arc, e);
         text += "," + name_at(c.materials, state.material, e) + "," + name_at(films, state.film, e);
-        for (const auto& thickness : state.grown.thickness) text += "," + shortest(thickness[e]);
+        for (const auto& thickness : state.grown.thickness)
+            text += "," + shortest(thickness[e]);
         text += ",";
-        if (!state.rate.empty()) text += shortest(state.rate[e] * seconds_per_minute);
+        if (!state.rate.empty())
+            text += shortest(state.rate[e] * seconds_per_minute);
         text += ",";
-        if (!state.displacement.empty()) text += shortest(element_error(state, e));
-        for (const NamedField& field : state.fields) text += "," + shortest(field.value[e]);
+        if (!errors.empty())
+            text += shortest(errors[e]);
+        for (const NamedField& field : state.fields)
+            text += "," + shortest(field.value[e]);
         text += "\n";
     }
     return text;

@@ -13,23 +13,23 @@ namespace rille::engine {
 /// stand under a key.
 struct Rule {
     enum class Kind {
-        text,       ///< any text
-        word,       ///< one of `words`
-        sentence,   ///< text of the form `form`, matched by the regular expression `pattern`
+        text,     ///< any text
+        word,     ///< one of `words`
+        sentence, ///< text of the form `form`, matched by the regular expression `pattern`
         integer,
         number,
-        truth,      ///< true or false
-        quantity,   ///< number with a unit
-        quantities, ///< one quantity or a list of them, `least_items` to `most_items` long
-        anything,   ///< kept as written
-        map,        ///< known keys: `members`
-        list,       ///< any number of `members[0]`, at least `least_items`
-        dictionary, ///< names chosen by the user, each with a value by `members[0]`
+        truth,       ///< true or false
+        quantity,    ///< number with a unit
+        quantities,  ///< one quantity or a list of them, `least_items` to `most_items` long
+        anything,    ///< kept as written
+        map,         ///< known keys: `members`
+        list,        ///< any number of `members[0]`, at least `least_items`
+        dictionary,  ///< names chosen by the user, each with a value by `members[0]`
         alternatives ///< a map whose key `selector` says which of `members` it follows
     };
     std::string key; ///< for alternatives: the selecting word, "" = selector absent, "*" = present
     Kind kind = Kind::text;
-    std::string meaning;      ///< one line
+    std::string meaning; ///< one line
     Dimension dimension = Dimension::length;
     Range range;
     std::vector<std::string> words;

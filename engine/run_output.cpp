@@ -14,7 +14,9 @@ namespace {
 
 constexpr double png_scale = 2;
 
-std::string json_text(const nlohmann::json& json) { return json.dump(2) + "\n"; }
+std::string json_text(const nlohmann::json& json) {
+    return json.dump(2) + "\n";
+}
 
 } // namespace
 
@@ -23,7 +25,12 @@ RunOutput::RunOutput(OutputFolder& folder, const Case& c) : folder_(folder), cas
 }
 
 void RunOutput::add_frame(const SurfaceState& state) {
-    const std::string file = fmt::format("{}/frame_{:04}.vtp", output_names::frames, series_.size());
+    if (!series_.empty() && state.time_s <= series_.back().time_s) {
+        series_.pop_back(); // a later view of the same instant replaces the earlier one
+        fronts_.pop_back();
+    }
+    const std::string file =
+        fmt::format("{}/frame_{:04}.vtp", output_names::frames, series_.size());
     folder_.write(file, vtp_text(case_, state));
     series_.push_back({state.time_s, file});
     folder_.write(output_names::series, pvd_text(series_));
@@ -32,7 +39,8 @@ void RunOutput::add_frame(const SurfaceState& state) {
 }
 
 Metrics RunOutput::finish(const RunResult& result) {
-    if (series_.empty() || result.last.time_s > series_.back().time_s) add_frame(result.last);
+    if (series_.empty() || result.last.time_s > series_.back().time_s)
+        add_frame(result.last);
     folder_.write(output_names::history, history_csv(case_, result.history));
     folder_.write(output_names::profile, profile_csv(case_, result.last));
     const Metrics metrics = measure(case_, result.last);
@@ -46,7 +54,10 @@ Metrics RunOutput::finish(const RunResult& result) {
     files.insert(std::upper_bound(files.begin(), files.end(), output_names::record),
                  output_names::record);
     files.erase(std::unique(files.begin(), files.end()), files.end());
-    folder_.write(output_names::record, json_text(record_json(case_, result.record, files)));
+    RunRecord record = result.record;
+    if (record.peak_memory_bytes == 0)
+        record.peak_memory_bytes = peak_memory_bytes();
+    folder_.write(output_names::record, json_text(record_json(case_, record, files)));
     return metrics;
 }
 

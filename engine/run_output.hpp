@@ -14,17 +14,18 @@ namespace rille::engine {
 /// Writes a run into its folder: frames as they come, everything else at the end. After every call
 /// the folder is valid as it stands, so an interrupted run leaves what it had.
 class RunOutput {
-  public:
+public:
     /// Writes the resolved case at once. Both arguments must outlive this object.
     RunOutput(OutputFolder&, const Case&);
 
-    /// Writes one frame and renews the series file. Times must increase; the first is the start.
+    /// Writes one frame and renews the series file. Times must not fall; the first is the start. A
+    /// frame at the time of the one before replaces it.
     void add_frame(const SurfaceState&);
     /// Writes history, profile, metrics, level set, picture and record; adds `result.last` as a
     /// frame if it is later than the last one. Returns the metrics. May be called again.
     Metrics finish(const RunResult& result);
 
-  private:
+private:
     OutputFolder& folder_;
     const Case& case_;
     std::vector<SeriesEntry> series_;

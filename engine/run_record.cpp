@@ -42,7 +42,8 @@ json steps_json(const std::vector<StepOutcome>& steps) {
 json unused_json(const Case& c) {
     json unused = json::object();
     for (const auto& [name, plasma] : c.plasmas)
-        if (!plasma.unused.empty()) unused[name] = plasma.unused;
+        if (!plasma.unused.empty())
+            unused[name] = plasma.unused;
     return unused;
 }
 
@@ -57,9 +58,11 @@ json machine_json(const RunRecord& record) {
 
 json record_json(const Case& c, const RunRecord& record, const std::vector<std::string>& files) {
     json timings = json::object();
-    for (const PhaseTime& phase : record.timings) timings[phase.name + "_s"] = phase.seconds;
+    for (const PhaseTime& phase : record.timings)
+        timings[phase.name + "_s"] = phase.seconds;
     std::vector<std::string> films;
-    for (const geometry::Film& film : c.films) films.push_back(film.name);
+    for (const geometry::Film& film : c.films)
+        films.push_back(film.name);
     std::vector<std::string> warnings = c.warnings;
     warnings.insert(warnings.end(), record.warnings.begin(), record.warnings.end());
     const double lost =
@@ -68,7 +71,10 @@ json record_json(const Case& c, const RunRecord& record, const std::vector<std::
             {"title", c.title},
             {"status", record.status},
             {"program",
-             {{"name", "rille"}, {"version", version()}, {"revision", revision()}, {"build", build_info()}}},
+             {{"name", "rille"},
+              {"version", version()},
+              {"revision", revision()},
+              {"build", build_info()}}},
             {"command", record.command},
             {"case_file", c.file},
             {"case_sha256", content_hash(c.resolved_yaml)},
@@ -102,27 +108,34 @@ std::vector<std::string> cpu_features() {
     std::vector<std::string> found;
 #if defined(__x86_64__)
     __builtin_cpu_init();
-    if (__builtin_cpu_supports("sse4.2")) found.emplace_back("sse4.2");
-    if (__builtin_cpu_supports("avx")) found.emplace_back("avx");
-    if (__builtin_cpu_supports("fma")) found.emplace_back("fma");
-    if (__builtin_cpu_supports("fma4")) found.emplace_back("fma4");
-    if (__builtin_cpu_supports("avx2")) found.emplace_back("avx2");
-    if (__builtin_cpu_supports("avx512f")) found.emplace_back("avx512f");
+    if (__builtin_cpu_supports("sse4.2"))
+        found.emplace_back("sse4.2");
+    if (__builtin_cpu_supports("avx"))
+        found.emplace_back("avx");
+    if (__builtin_cpu_supports("fma"))
+        found.emplace_back("fma");
+    if (__builtin_cpu_supports("fma4"))
+        found.emplace_back("fma4");
+    if (__builtin_cpu_supports("avx2"))
+        found.emplace_back("avx2");
+    if (__builtin_cpu_supports("avx512f"))
+        found.emplace_back("avx512f");
 #endif
     return found;
 }
 
 std::string content_hash(const std::string& text) {
     const std::unique_ptr<char, void (*)(void*)> digest(
-        g_compute_checksum_for_data(G_CHECKSUM_SHA256,
-                                    reinterpret_cast<const guchar*>(text.data()), text.size()),
+        g_compute_checksum_for_data(G_CHECKSUM_SHA256, reinterpret_cast<const guchar*>(text.data()),
+                                    text.size()),
         &g_free);
     return digest.get();
 }
 
 std::uint64_t peak_memory_bytes() {
     rusage usage{};
-    if (getrusage(RUSAGE_SELF, &usage) != 0) return 0;
+    if (getrusage(RUSAGE_SELF, &usage) != 0)
+        return 0;
     return static_cast<std::uint64_t>(usage.ru_maxrss) * 1024; // Linux counts in KiB
 }
 

@@ -23,21 +23,22 @@ struct PhaseTime {
     double seconds = 0;
 };
 
-/// Where a result comes from and how the computation went. Everything that is not known stays empty.
+/// Where a result comes from and how the computation went. Everything that is not known stays
+/// empty.
 struct RunRecord {
     std::string status = "done"; ///< "done", "not cleared", "interrupted", "failed"
     std::string command;
     int threads = 0;
-    std::string started;         ///< UTC, 2026-01-31T12:00:00Z
+    std::string started; ///< UTC, 2026-01-31T12:00:00Z
     double wall_seconds = 0;
     std::vector<PhaseTime> timings;
     std::vector<StepOutcome> steps;
     std::vector<std::string> warnings; ///< raised during the run; the case's own are added
     double simulated_s = 0;
-    int refreshes = 0;                 ///< of the arrivals
+    int refreshes = 0; ///< of the arrivals
     std::uint64_t rays = 0;
     std::uint64_t lost_rays = 0;
-    double redistance_shift = 0;       ///< [cells] largest accumulated
+    double redistance_shift = 0; ///< [cells] largest accumulated
     std::uint64_t peak_memory_bytes = 0;
 };
 

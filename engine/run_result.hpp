@@ -15,8 +15,9 @@ namespace rille::engine {
 
 struct Case;
 
-/// One value per surface element, under the name and unit that files show: {"ion_flux", "per_nm2_s"}
-/// becomes the column ion_flux_per_nm2_s. Units: nm, nm_per_min, per_nm2_s, deg, 1 (dimensionless).
+/// One value per surface element, under the name and unit that files show: {"ion_flux",
+/// "per_nm2_s"} becomes the column ion_flux_per_nm2_s. Units: nm, nm_per_min, per_nm2_s, deg, 1
+/// (dimensionless).
 struct NamedField {
     std::string name;
     std::string unit;
@@ -29,10 +30,10 @@ struct SurfaceState {
     double time_s = 0;
     std::string step;
     geometry::Surface surface;
-    std::vector<int> material;  ///< outermost material, index into Case::materials
-    std::vector<int> film;      ///< film just inside the solid, below grown films: Case::films
-    geometry::GrownFilms grown; ///< films grown during the run or laid at its start
-    std::vector<double> rate;   ///< [nm/s], > 0 etching
+    std::vector<int> material;      ///< outermost material, index into Case::materials
+    std::vector<int> film;          ///< film just inside the solid, below grown films: Case::films
+    geometry::GrownFilms grown;     ///< films grown during the run or laid at its start
+    std::vector<double> rate;       ///< [nm/s], > 0 etching
     std::vector<NamedField> fields; ///< fluxes, coverages, causes
     /// displacement[b][e] [nm]: where batch b alone would have put the element, less where all put
     /// it (either sign convention); 8 batches, or empty where nothing is sampled.

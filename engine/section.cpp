@@ -14,12 +14,15 @@ namespace {
 using geometry::Surface;
 using geometry::Vec3;
 
-std::array<double, 2> xz(const Vec3& p) { return {p.x, p.z}; }
+std::array<double, 2> xz(const Vec3& p) {
+    return {p.x, p.z};
+}
 
 /// Does element e go on where its predecessor ends (and not on the other side of the period)?
 bool joined(const Surface& s, int e) {
     const int before = s.previous[e];
-    if (before < 0) return false;
+    if (before < 0)
+        return false;
     const Vec3 gap = s.vertices[s.corners[e][0]] - s.vertices[s.corners[before][1]];
     return gap.length() <= 1e-9 * (1 + s.area[e]);
 }
@@ -34,7 +37,8 @@ SectionLine walk(const Surface& s, int start, std::vector<char>& seen) {
         line.points.push_back(xz(s.vertices[s.corners[e][1]]));
         const int after = s.next[e];
         line.closed = after == start && joined(s, start);
-        if (after < 0 || seen[after] || !joined(s, after)) return line;
+        if (after < 0 || seen[after] || !joined(s, after))
+            return line;
         e = after;
     }
 }
@@ -44,16 +48,18 @@ Section chains(const Surface& s) {
     const int n = static_cast<int>(s.size());
     std::vector<char> seen(n, 0);
     for (int e = 0; e < n; ++e)
-        if (!joined(s, e)) section.push_back(walk(s, e, seen));
+        if (!joined(s, e))
+            section.push_back(walk(s, e, seen));
     for (int e = 0; e < n; ++e)
-        if (!seen[e]) section.push_back(walk(s, e, seen));
+        if (!seen[e])
+            section.push_back(walk(s, e, seen));
     return section;
 }
 
 /// Cuts triangles by a plane. Cut points lie on mesh edges and are known by the edge, so pieces
 /// join exactly; a vertex on the plane counts as above it.
 class Cutter {
-  public:
+public:
     Cutter(const Surface& s, int axis, double level, int first, int second)
         : s_(s), axis_(axis), level_(level), first_(first), second_(second) {}
 
@@ -61,17 +67,20 @@ class Cutter {
         for (std::size_t e = 0; e < s_.size(); ++e) {
             const auto& c = s_.corners[e];
             cut_triangle(static_cast<int>(e), c[0], c[1], c[2]);
-            if (c[3] != c[2]) cut_triangle(static_cast<int>(e), c[0], c[2], c[3]);
+            if (c[3] != c[2])
+                cut_triangle(static_cast<int>(e), c[0], c[2], c[3]);
         }
         Section section;
         for (std::size_t p = 0; p < links_.size(); ++p)
-            if (links_[p].size() == 1 && !done(p)) section.push_back(follow(p));
+            if (links_[p].size() == 1 && !done(p))
+                section.push_back(follow(p));
         for (std::size_t p = 0; p < links_.size(); ++p)
-            if (!done(p)) section.push_back(follow(p));
+            if (!done(p))
+                section.push_back(follow(p));
         return section;
     }
 
-  private:
+private:
     struct Link {
         std::size_t other;
         int element;
@@ -80,11 +89,13 @@ class Cutter {
 
     bool above(int v) const { return s_.vertices[v][axis_] >= level_; }
     bool done(std::size_t p) const {
-        return std::all_of(links_[p].begin(), links_[p].end(), [](const Link& l) { return l.used; });
+        return std::all_of(links_[p].begin(), links_[p].end(),
+                           [](const Link& l) { return l.used; });
     }
 
     std::size_t point(int a, int b) {
-        if (a > b) std::swap(a, b);
+        if (a > b)
+            std::swap(a, b);
         const std::uint64_t key = (static_cast<std::uint64_t>(a) << 32) | static_cast<unsigned>(b);
         const auto [at, fresh] = index_.try_emplace(key, points_.size());
         if (fresh) {
@@ -100,8 +111,10 @@ class Cutter {
     void cut_triangle(int element, int a, int b, int c) {
         std::vector<std::size_t> ends;
         for (const auto& [p, q] : {std::pair(a, b), std::pair(b, c), std::pair(c, a)})
-            if (above(p) != above(q)) ends.push_back(point(p, q));
-        if (ends.size() != 2) return;
+            if (above(p) != above(q))
+                ends.push_back(point(p, q));
+        if (ends.size() != 2)
+            return;
         links_[ends[0]].push_back({ends[1], element});
         links_[ends[1]].push_back({ends[0], element});
     }
@@ -113,7 +126,8 @@ class Cutter {
         while (true) {
             const auto link = std::find_if(links_[at].begin(), links_[at].end(),
                                            [](const Link& l) { return !l.used; });
-            if (link == links_[at].end()) break;
+            if (link == links_[at].end())
+                break;
             link->used = true;
             const std::size_t to = link->other;
             for (Link& back : links_[to])
@@ -141,11 +155,14 @@ class Cutter {
 } // namespace
 
 Section vertical_section(const geometry::Domain& domain, const Surface& s, double y) {
-    if (domain.extruded()) return chains(s);
+    if (domain.extruded())
+        return chains(s);
     return Cutter(s, 1, y, 0, 2).cut();
 }
 
-Section horizontal_section(const Surface& s, double z) { return Cutter(s, 2, z, 0, 1).cut(); }
+Section horizontal_section(const Surface& s, double z) {
+    return Cutter(s, 2, z, 0, 1).cut();
+}
 
 bool walls_at(const Section& section, double height, double x, double& left, double& right) {
     const double none = std::numeric_limits<double>::infinity();
@@ -154,10 +171,13 @@ bool walls_at(const Section& section, double height, double x, double& left, dou
     for (const SectionLine& line : section)
         for (std::size_t i = 0; i + 1 < line.points.size(); ++i) {
             const auto &p = line.points[i], &q = line.points[i + 1];
-            if ((p[1] >= height) == (q[1] >= height)) continue;
+            if ((p[1] >= height) == (q[1] >= height))
+                continue;
             const double cut = p[0] + (q[0] - p[0]) * (height - p[1]) / (q[1] - p[1]);
-            if (cut <= x) left = std::max(left, cut);
-            else right = std::min(right, cut);
+            if (cut <= x)
+                left = std::max(left, cut);
+            else
+                right = std::min(right, cut);
         }
     return std::isfinite(left) && std::isfinite(right);
 }

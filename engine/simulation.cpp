@@ -164,7 +164,8 @@ const fluxes::SurfaceStep& Simulation::arrivals() {
 Simulation::Trial Simulation::try_advance(const fluxes::SurfaceStep& step, double time,
                                           double max_move) {
     Trial trial{front_, {}, films_, {}};
-    std::vector<int> growth(surface_.size(), -1);
+    // Where nothing grows at the element's own normal it may at another: then the outermost film.
+    std::vector<int> growth(surface_.size(), static_cast<int>(films_.material.size()) - 1);
     for (std::size_t e = 0; e < growth.size(); ++e)
         for (std::size_t f = 0; f < films_.material.size(); ++f)
             if (films_.material[f] == step.growth_material[e]) growth[e] = static_cast<int>(f);

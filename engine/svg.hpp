@@ -20,13 +20,13 @@ struct TextStyle {
     Anchor anchor = Anchor::start;
     bool bold = false;
     std::string colour = "#222222";
-    bool halo = false;    ///< a white edge, so that it reads over lines and fills
-    double rotate = 0;    ///< [deg] about its anchor point
+    bool halo = false; ///< a white edge, so that it reads over lines and fills
+    double rotate = 0; ///< [deg] about its anchor point
 };
 
 /// Writes an SVG page. Coordinates in px, y down. Font DejaVu Sans throughout.
 class Svg {
-  public:
+public:
     Svg(double width, double height, const std::string& title);
 
     double width() const { return width_; }
@@ -40,7 +40,7 @@ class Svg {
     void text(double x, double y, const std::string& content, const TextStyle&);
     std::string finish() const;
 
-  private:
+private:
     double width_, height_;
     std::string title_, defs_, body_;
 };

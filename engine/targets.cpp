@@ -18,7 +18,8 @@ std::string weak_parameters(const Case& c) {
     std::string text;
     const auto add = [&](fluxes::Standing standing, const char* name) {
         const auto found = c.standing.find(standing);
-        if (found == c.standing.end() || found->second == 0) return;
+        if (found == c.standing.end() || found->second == 0)
+            return;
         text += fmt::format("{}{} {}", text.empty() ? "" : " and ", found->second, name);
     };
     add(fluxes::Standing::illustrative, "illustrative");
@@ -30,7 +31,8 @@ std::string range_text(const Target& target, const std::string& unit) {
     const std::string suffix = unit == "1" ? "" : " " + unit;
     if (target.at_least && target.at_most)
         return rounded(*target.at_least) + " to " + rounded(*target.at_most) + suffix;
-    if (target.at_least) return "at least " + rounded(*target.at_least) + suffix;
+    if (target.at_least)
+        return "at least " + rounded(*target.at_least) + suffix;
     return "at most " + (target.at_most ? rounded(*target.at_most) : "?") + suffix;
 }
 
@@ -44,7 +46,8 @@ TargetVerdict judge_metric(const Case& c, const Target& target, const Metric& me
         result.by_numbers = judge(*metric.value, metric.sampling_error, target);
         result.reason = with_error(*metric.value, metric.sampling_error) +
                         (metric.unit == "1" ? "" : " " + metric.unit);
-        if (result.by_numbers == Verdict::undecided) result.reason += " straddles the limit";
+        if (result.by_numbers == Verdict::undecided)
+            result.reason += " straddles the limit";
     } else {
         result.by_numbers = Verdict::missed;
         result.reason = "no such value: " + metric.note;
@@ -53,8 +56,8 @@ TargetVerdict judge_metric(const Case& c, const Target& target, const Metric& me
     const std::string weak = weak_parameters(c);
     if (!weak.empty() && result.by_numbers != Verdict::undecided) {
         result.verdict = Verdict::undecided;
-        result.reason += fmt::format("; {} by the numbers, but {}",
-                                     verdict_name(result.by_numbers), weak);
+        result.reason +=
+            fmt::format("; {} by the numbers, but {}", verdict_name(result.by_numbers), weak);
     }
     return result;
 }
@@ -67,15 +70,18 @@ json metric_json(const Metric& m) {
                   {"sampling_error", m.sampling_error},
                   {"grid_error", "not assessed"},
                   {"definition", m.definition}};
-    if (m.value) entry["value"] = *m.value;
-    else entry["note"] = m.note;
+    if (m.value)
+        entry["value"] = *m.value;
+    else
+        entry["note"] = m.note;
     return entry;
 }
 
 /// Pads by characters seen, not bytes: the table holds a two-byte plus-minus sign.
 std::string padded(const std::string& text, std::size_t width) {
     std::size_t seen = 0;
-    for (const char ch : text) seen += (static_cast<unsigned char>(ch) & 0xC0) != 0x80;
+    for (const char ch : text)
+        seen += (static_cast<unsigned char>(ch) & 0xC0) != 0x80;
     return text + std::string(seen < width ? width - seen : 0, ' ');
 }
 
@@ -94,14 +100,18 @@ const Metric* Metrics::find(const std::string& name, const std::string& feature)
 
 const char* verdict_name(Verdict verdict) {
     switch (verdict) {
-    case Verdict::met: return "met";
-    case Verdict::missed: return "missed";
-    default: return "undecided";
+    case Verdict::met:
+        return "met";
+    case Verdict::missed:
+        return "missed";
+    default:
+        return "undecided";
     }
 }
 
 Verdict judge(double value, double error, const Target& target) {
-    if (!std::isfinite(value) || !std::isfinite(error)) return Verdict::undecided;
+    if (!std::isfinite(value) || !std::isfinite(error))
+        return Verdict::undecided;
     const double low = value - error, high = value + error;
     if ((target.at_least && high < *target.at_least) || (target.at_most && low > *target.at_most))
         return Verdict::missed;
@@ -137,7 +147,8 @@ std::vector<TargetVerdict> judge_targets(const Case& c, const Metrics& metrics) 
 
 json metrics_json(const Case& c, const Metrics& metrics) {
     json list = json::array(), targets = json::array(), clearing = json::array();
-    for (const Metric& m : metrics.metrics) list.push_back(metric_json(m));
+    for (const Metric& m : metrics.metrics)
+        list.push_back(metric_json(m));
     for (const TargetVerdict& v : metrics.targets)
         targets.push_back({{"target", v.target},
                            {"metric", v.metric},
@@ -152,8 +163,9 @@ json metrics_json(const Case& c, const Metrics& metrics) {
                             {"remaining_nm", entry.remaining_nm}});
     return {{"title", c.title},
             {"time_s", metrics.time_s},
-            {"errors", "sampling_error: 95 %, from 8 batches; grid error and the uncertainty of the "
-                       "parameters are not assessed"},
+            {"errors",
+             "sampling_error: 95 %, from 8 batches; grid error and the uncertainty of the "
+             "parameters are not assessed"},
             {"metrics", list},
             {"clearing", clearing},
             {"targets", targets}};
@@ -162,18 +174,21 @@ json metrics_json(const Case& c, const Metrics& metrics) {
 std::string metrics_table(const Case& c, const Metrics& metrics) {
     std::size_t width = 0;
     const bool several = c.mask.openings.size() > 1;
-    const auto label = [&](const Metric& m) { return several ? m.feature + ": " + m.name : m.name; };
-    for (const Metric& m : metrics.metrics) width = std::max(width, label(m).size());
+    const auto label = [&](const Metric& m) {
+        return several ? m.feature + ": " + m.name : m.name;
+    };
+    for (const Metric& m : metrics.metrics)
+        width = std::max(width, label(m).size());
     std::string text;
     for (const Metric& m : metrics.metrics) {
-        const std::string value =
-            m.value ? with_unit(with_error(*m.value, m.sampling_error), m.unit) : "-  (" + m.note + ")";
+        const std::string value = m.value
+                                      ? with_unit(with_error(*m.value, m.sampling_error), m.unit)
+                                      : "-  (" + m.note + ")";
         text += "  " + padded(label(m), width + 2) + value + "\n";
     }
     for (const Metrics::Clearing& entry : metrics.clearing)
         text += "  " + padded(several ? entry.feature + ": " + entry.film : entry.film, width + 2) +
-                (entry.cleared ? "cleared" : rounded(entry.remaining_nm) + " nm left") +
-                "\n";
+                (entry.cleared ? "cleared" : rounded(entry.remaining_nm) + " nm left") + "\n";
     for (const TargetVerdict& v : metrics.targets)
         text += "  " + padded(verdict_name(v.verdict), 10) + v.target + "  (" + v.reason + ")\n";
     return text + "  ± 95 % sampling error; grid error and parameter uncertainty: not assessed\n";

@@ -14,23 +14,29 @@ namespace {
 
 constexpr double seconds_per_minute = 60;
 
-template <class T> struct TypeName;
-template <> struct TypeName<double> {
+template <class T>
+struct TypeName;
+template <>
+struct TypeName<double> {
     static constexpr const char* text = "Float64";
 };
-template <> struct TypeName<std::int64_t> {
+template <>
+struct TypeName<std::int64_t> {
     static constexpr const char* text = "Int64";
 };
-template <> struct TypeName<int> {
+template <>
+struct TypeName<int> {
     static constexpr const char* text = "Int32";
 };
 
 /// One block: the count of bytes as a 64-bit number, then the bytes, encoded together.
-template <class T> std::string encoded(const std::vector<T>& values) {
+template <class T>
+std::string encoded(const std::vector<T>& values) {
     const std::uint64_t bytes = values.size() * sizeof(T);
     std::vector<guchar> block(sizeof bytes + bytes);
     std::memcpy(block.data(), &bytes, sizeof bytes);
-    if (bytes) std::memcpy(block.data() + sizeof bytes, values.data(), bytes);
+    if (bytes)
+        std::memcpy(block.data() + sizeof bytes, values.data(), bytes);
     const std::unique_ptr<gchar, void (*)(void*)> text(g_base64_encode(block.data(), block.size()),
                                                        &g_free);
     return text.get();
@@ -46,12 +52,14 @@ std::string array(const std::string& name, const std::vector<T>& values, int com
 std::string vectors(const std::string& name, const std::vector<geometry::Vec3>& values) {
     std::vector<double> flat;
     flat.reserve(3 * values.size());
-    for (const geometry::Vec3& v : values) flat.insert(flat.end(), {v.x, v.y, v.z});
+    for (const geometry::Vec3& v : values)
+        flat.insert(flat.end(), {v.x, v.y, v.z});
     return array(name, flat, 3);
 }
 
 int corner_count(const std::array<int, 4>& corners) {
-    if (corners[2] < 0) return 2;
+    if (corners[2] < 0)
+        return 2;
     return corners[3] == corners[2] ? 3 : 4;
 }
 
@@ -69,16 +77,21 @@ std::string cell_data(const Case& c, const SurfaceState& state) {
     const geometry::Surface& s = state.surface;
     std::string text = vectors("normal", s.normal);
     text += array(c.domain.extruded() ? "length_nm" : "area_nm2", s.area);
-    if (!s.chain.empty()) text += array("chain", s.chain);
-    if (!s.next.empty()) text += array("next", s.next) + array("previous", s.previous);
-    if (!state.material.empty()) text += array("material", state.material);
-    if (!state.film.empty()) text += array("film", state.film);
+    if (!s.chain.empty())
+        text += array("chain", s.chain);
+    if (!s.next.empty())
+        text += array("next", s.next) + array("previous", s.previous);
+    if (!state.material.empty())
+        text += array("material", state.material);
+    if (!state.film.empty())
+        text += array("film", state.film);
     for (std::size_t f = 0; f < state.grown.material.size(); ++f)
         text += array("grown_" + column_name(c.materials.at(state.grown.material[f])) + "_nm",
                       state.grown.thickness[f]);
     if (!state.rate.empty()) {
         std::vector<double> per_minute = state.rate;
-        for (double& rate : per_minute) rate *= seconds_per_minute;
+        for (double& rate : per_minute)
+            rate *= seconds_per_minute;
         text += array("rate_nm_per_min", per_minute);
     }
     for (const NamedField& field : state.fields)

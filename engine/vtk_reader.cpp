@@ -27,18 +27,21 @@ bool ends_with(const std::string& text, const std::string& end) {
            text.compare(text.size() - end.size(), end.size(), end) == 0;
 }
 
-template <class T> std::vector<T> decoded(const Tree& array) {
+template <class T>
+std::vector<T> decoded(const Tree& array) {
     const std::string text = array.get_value<std::string>();
     gsize size = 0;
     const std::unique_ptr<guchar, void (*)(void*)> block(g_base64_decode(text.c_str(), &size),
                                                          &g_free);
     std::uint64_t bytes = 0;
-    if (size < sizeof bytes) throw std::runtime_error("an array is cut short");
+    if (size < sizeof bytes)
+        throw std::runtime_error("an array is cut short");
     std::memcpy(&bytes, block.get(), sizeof bytes);
     if (bytes != size - sizeof bytes || bytes % sizeof(T) != 0)
         throw std::runtime_error("an array has the wrong length");
     std::vector<T> values(bytes / sizeof(T));
-    if (bytes) std::memcpy(values.data(), block.get() + sizeof bytes, bytes);
+    if (bytes)
+        std::memcpy(values.data(), block.get() + sizeof bytes, bytes);
     return values;
 }
 
@@ -71,10 +74,12 @@ void read_corners(const Tree& group, geometry::Surface& s) {
                 throw std::runtime_error("a cell names a point that does not exist");
             corners[i] = static_cast<int>(vertex);
         }
-        if (n == 3) corners[3] = corners[2];
+        if (n == 3)
+            corners[3] = corners[2];
         s.corners.push_back(corners);
         geometry::Vec3 sum(0, 0, 0);
-        for (std::int64_t i = 0; i < n; ++i) sum += s.vertices[corners[i]];
+        for (std::int64_t i = 0; i < n; ++i)
+            sum += s.vertices[corners[i]];
         s.centre.push_back(sum / static_cast<double>(n));
         begin = end;
     }
@@ -82,7 +87,8 @@ void read_corners(const Tree& group, geometry::Surface& s) {
 
 int material_of(const Case& c, const std::string& column) {
     for (std::size_t m = 0; m < c.materials.size(); ++m)
-        if (column_name(c.materials[m]) == column) return static_cast<int>(m);
+        if (column_name(c.materials[m]) == column)
+            return static_cast<int>(m);
     throw std::runtime_error("grown film of a material that the case does not have: " + column);
 }
 
@@ -99,19 +105,27 @@ void add_field(const std::string& name, std::vector<double> values, SurfaceState
 void read_cell_array(const Case& c, const std::string& name, const Tree& array,
                      SurfaceState& state) {
     geometry::Surface& s = state.surface;
-    if (name == "normal") s.normal = vectors(decoded<double>(array));
-    else if (name == "length_nm" || name == "area_nm2") s.area = decoded<double>(array);
-    else if (name == "chain") s.chain = decoded<int>(array);
-    else if (name == "next") s.next = decoded<int>(array);
-    else if (name == "previous") s.previous = decoded<int>(array);
-    else if (name == "material") state.material = decoded<int>(array);
-    else if (name == "film") state.film = decoded<int>(array);
+    if (name == "normal")
+        s.normal = vectors(decoded<double>(array));
+    else if (name == "length_nm" || name == "area_nm2")
+        s.area = decoded<double>(array);
+    else if (name == "chain")
+        s.chain = decoded<int>(array);
+    else if (name == "next")
+        s.next = decoded<int>(array);
+    else if (name == "previous")
+        s.previous = decoded<int>(array);
+    else if (name == "material")
+        state.material = decoded<int>(array);
+    else if (name == "film")
+        state.film = decoded<int>(array);
     else if (starts_with(name, "grown_") && ends_with(name, "_nm")) {
         state.grown.material.push_back(material_of(c, name.substr(6, name.size() - 9)));
         state.grown.thickness.push_back(decoded<double>(array));
     } else if (name == "rate_nm_per_min") {
         state.rate = decoded<double>(array);
-        for (double& rate : state.rate) rate /= seconds_per_minute;
+        for (double& rate : state.rate)
+            rate /= seconds_per_minute;
     } else if (starts_with(name, "displacement_batch")) {
         state.displacement.push_back(decoded<double>(array));
     } else {

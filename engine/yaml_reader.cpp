@@ -2,6 +2,7 @@
 #include "engine/yaml_reader.hpp"
 
 #include "engine/words.hpp"
+#include "engine/yaml_text.hpp"
 
 #include <fmt/format.h>
 #include <yaml-cpp/eventhandler.h>
@@ -10,7 +11,6 @@
 #include <algorithm>
 #include <filesystem>
 #include <fstream>
-#include <map>
 #include <sstream>
 
 namespace rille::engine {
@@ -22,25 +22,6 @@ constexpr std::size_t most_values = 1000000;
 
 /// Ends the parse once the document cannot be read any further; the problem is already noted.
 struct Abandon {};
-
-/// Whether the quote that opens at line, column (from 0) closes again. The parser takes the end of
-/// the file for a closing quote.
-bool is_closed(const std::vector<std::string>& lines, int line, int column) {
-    if (line >= static_cast<int>(lines.size()) || column >= static_cast<int>(lines[line].size()))
-        return true;
-    const char quote = lines[line][column];
-    if (quote != '"' && quote != '\'')
-        return true; // a block of literal text
-    std::size_t at = static_cast<std::size_t>(column) + 1;
-    for (std::size_t l = line; l < lines.size(); ++l, at = 0)
-        for (; at < lines[l].size(); ++at) {
-            if (quote == '"' && lines[l][at] == '\\')
-                ++at;
-            else if (lines[l][at] == quote)
-                return true;
-        }
-    return false;
-}
 
 /// Builds the tree from the events of the parser. Events rather than the library's own nodes,
 /// because only they show duplicate keys, quotes, anchors and the place of empty values.
@@ -70,7 +51,8 @@ public:
         put(std::move(node), mark);
     }
     void OnAlias(const YAML::Mark& mark, YAML::anchor_t) override {
-        problems_.add(place(mark), path(), "aliases (*name) are not read; write the value out");
+        if (!expects_value() || open_.back().node.members.back().key != "<<") // said already
+            problems_.add(place(mark), path(), "aliases (*name) are not read; write the value out");
         YamlNode node;
         node.kind = YamlNode::Kind::scalar;
         node.is_quoted = true;
@@ -230,7 +212,9 @@ private:
                           fmt::format("{}: a space is missing after the colon; write \"{}: {}\"",
                                       quoted(member.key), member.key.substr(0, colon),
                                       trimmed(member.key.substr(colon + 1))));
-        return again || no_space || member.key.empty() || member.key == "<<";
+        const bool is_lost = no_space || member.key == "<<";
+        open_.back().node.is_damaged = open_.back().node.is_damaged || is_lost;
+        return again || is_lost || member.key.empty();
     }
 
     std::string file_;
@@ -239,87 +223,6 @@ private:
     std::vector<Open> open_;
     std::size_t values_ = 0;
 };
-
-std::vector<std::string> split_lines(const std::string& text) {
-    std::vector<std::string> lines;
-    std::istringstream stream(text);
-    for (std::string line; std::getline(stream, line);)
-        lines.push_back(line);
-    return lines;
-}
-
-/// Column of the first byte that is not UTF-8, 0 if there is none.
-int bad_utf8(const std::string& line) {
-    for (std::size_t i = 0; i < line.size();) {
-        const auto c = static_cast<unsigned char>(line[i]);
-        const std::size_t more = c < 0x80                ? 0
-                                 : c >= 0xc2 && c < 0xe0 ? 1
-                                 : (c & 0xf0) == 0xe0    ? 2
-                                 : c >= 0xf0 && c < 0xf5 ? 3
-                                                         : 9;
-        if (more == 9 || i + more >= line.size() + (more == 0))
-            return static_cast<int>(i) + 1;
-        for (std::size_t k = 1; k <= more; ++k)
-            if ((static_cast<unsigned char>(line[i + k]) & 0xc0u) != 0x80u)
-                return static_cast<int>(i) + 1;
-        i += more + 1;
-    }
-    return 0;
-}
-
-/// Traps that the parser does not report, or reports in words that do not help. True if the
-/// document should not be parsed.
-bool report_text_traps(const std::vector<std::string>& lines, const std::string& file,
-                       Problems& problems) {
-    bool stop = false;
-    for (std::size_t l = 0; l < lines.size(); ++l) {
-        const int line = static_cast<int>(l) + 1;
-        if (const int column = bad_utf8(lines[l])) {
-            problems.add({file, line, column}, "", "bytes that are not UTF-8 text");
-            stop = true;
-        }
-        const std::size_t first = lines[l].find_first_not_of(" \t\r");
-        const std::size_t tab = lines[l].find('\t');
-        if (first != std::string::npos && lines[l][first] != '#' && tab < first) {
-            problems.add({file, line, static_cast<int>(tab) + 1}, "",
-                         "a tab in the indentation; indent with spaces");
-            stop = true;
-        }
-    }
-    return stop;
-}
-
-/// "key:value" at the start of a line near a syntax error: {line, column of the key}, or {0, 0}.
-Location missing_space(const std::vector<std::string>& lines, const std::string& file, int near) {
-    for (int l = std::min<int>(near, static_cast<int>(lines.size())); l >= std::max(1, near - 2);
-         --l) {
-        const std::string& line = lines[l - 1];
-        std::size_t first = line.find_first_not_of(" -");
-        if (first == std::string::npos)
-            continue;
-        const std::size_t colon = line.find(':', first);
-        const std::size_t space = line.find_first_of(" {[\"'#", first);
-        if (colon != std::string::npos && colon < space && colon + 1 < line.size() &&
-            colon > first && line[colon + 1] != ' ' && line[colon + 1] != '\r')
-            return {file, l, static_cast<int>(first) + 1};
-    }
-    return {};
-}
-
-std::string plain_words(const std::string& parser_message) {
-    static const std::map<std::string, std::string> words = {
-        {"illegal map value", "a colon where no key can stand; is the line indented like its "
-                              "neighbours? Text that holds \": \" needs quotes"},
-        {"end of map not found", "keys of one map must be indented alike, and braces closed"},
-        {"end of sequence not found", "items of one list must be indented alike"},
-        {"end of map flow not found", "a brace { is not closed, or a comma is missing"},
-        {"end of sequence flow not found", "a bracket [ is not closed, or a comma is missing"},
-        {"unknown escape character: ", "unknown escape after a backslash; in single quotes "
-                                       "backslashes are plain"},
-    };
-    const auto found = words.find(parser_message);
-    return found != words.end() ? found->second : parser_message;
-}
 
 } // namespace
 
@@ -376,9 +279,8 @@ YamlNode read_yaml_text(const std::string& text, const std::string& name, Proble
         return {};
     } catch (const YAML::Exception& error) {
         const int line = error.mark.line + 1, column = error.mark.column + 1;
-        const Location slip = missing_space(lines, name, line);
-        if (slip.line > 0)
-            problems.add(slip, "", "a space is missing after the colon");
+        if (const auto slip = likely_slip(lines, name, line))
+            problems.add({slip->file, slip->line, slip->column}, "", slip->message);
         else
             problems.add({name, std::max(line, 1), std::max(column, 1)}, "",
                          plain_words(error.msg));

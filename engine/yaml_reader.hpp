@@ -16,6 +16,7 @@ struct YamlNode {
     Kind kind = Kind::empty;
     std::string text;            ///< of a scalar, exactly as written (quotes removed)
     bool is_quoted = false;      ///< a scalar in quotes is text, never a number or a boolean
+    bool is_damaged = false;     ///< a map that lost keys which were reported already
     Location at;                 ///< of the value; of the key if the value is empty
     std::string path;            ///< "mask.openings.trench.cd"; list items by name, else "[2]"
     std::vector<YamlNode> items; ///< of a list

@@ -74,7 +74,7 @@ std::string range_text(const Range& range, std::optional<Dimension> dimension) {
 
 std::optional<double> read_quantity(const YamlNode& node, Dimension dimension, const Range& range,
                                     Problems& problems) {
-    const std::string due = fmt::format("{}, for example {}", noun(dimension), example(dimension));
+    const std::string due = fmt::format("{} ({})", noun(dimension), example(dimension));
     if (!is_scalar(node, due, problems))
         return std::nullopt;
     const QuantityText quantity = parse_quantity(node.text, dimension);

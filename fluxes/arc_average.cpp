@@ -27,7 +27,8 @@ std::vector<Piece> smooth_pieces(const Surface& s) {
     std::vector<char> taken(count, 0);
     std::vector<Piece> pieces;
     for (int seed = 0; seed < count; ++seed) {
-        if (taken[seed]) continue;
+        if (taken[seed])
+            continue;
         int start = seed;
         bool ring = false;
         for (int e = s.previous[start]; e >= 0 && !corner_between(s, e, start); e = s.previous[e]) {
@@ -39,7 +40,8 @@ std::vector<Piece> smooth_pieces(const Surface& s) {
         }
         Piece piece{{}, ring};
         for (int e = start; e >= 0 && !taken[e]; e = s.next[e]) {
-            if (e != start && corner_between(s, s.previous[e], e)) break;
+            if (e != start && corner_between(s, s.previous[e], e))
+                break;
             taken[e] = 1;
             piece.elements.push_back(e);
         }
@@ -50,8 +52,10 @@ std::vector<Piece> smooth_pieces(const Surface& s) {
 
 /// Second integral over arc of the indicator of [from, to].
 double twice_integrated(double s, double from, double to) {
-    if (s <= from) return 0.0;
-    if (s <= to) return 0.5 * (s - from) * (s - from);
+    if (s <= from)
+        return 0.0;
+    if (s <= to)
+        return 0.5 * (s - from) * (s - from);
     return (to - from) * (s - 0.5 * (from + to));
 }
 
@@ -59,19 +63,21 @@ double twice_integrated(double s, double from, double to) {
 double box_weight(double a, double b, double window, double from, double to) {
     const double half = 0.5 * window;
     const auto d = [&](double s) { return twice_integrated(s, from, to); };
-    return std::max(0.0, (d(b + half) - d(a + half) - d(b - half) + d(a - half)) /
-                             (window * (b - a)));
+    return std::max(0.0,
+                    (d(b + half) - d(a + half) - d(b - half) + d(a - half)) / (window * (b - a)));
 }
 
 void add_piece(const Surface& surface, const Piece& piece, double window,
                std::vector<std::vector<ArcAverage::Part>>& rows) {
     const int n = static_cast<int>(piece.elements.size());
     std::vector<double> s(n + 1, 0.0);
-    for (int i = 0; i < n; ++i) s[i + 1] = s[i] + surface.area[piece.elements[i]];
+    for (int i = 0; i < n; ++i)
+        s[i + 1] = s[i] + surface.area[piece.elements[i]];
     const double all = s[n];
     if (all <= window || n == 1) { // shorter than the window: one average
         for (int e : piece.elements)
-            for (int f : piece.elements) rows[e].push_back({f, surface.area[f] / all});
+            for (int f : piece.elements)
+                rows[e].push_back({f, surface.area[f] / all});
         return;
     }
     const auto weight = [&](int i, int j) {
@@ -90,23 +96,30 @@ void add_piece(const Surface& surface, const Piece& piece, double window,
     };
     for (int i = 0; i < n; ++i) {
         int low = i, high = i;
-        while (low > 0 && reaches(i, low - 1)) --low;
-        while (high + 1 < n && reaches(i, high + 1)) ++high;
+        while (low > 0 && reaches(i, low - 1))
+            --low;
+        while (high + 1 < n && reaches(i, high + 1))
+            ++high;
         std::vector<int> near;
-        for (int j = low; j <= high; ++j) near.push_back(j);
+        for (int j = low; j <= high; ++j)
+            near.push_back(j);
         if (piece.ring) {
-            for (int j = 0; j < low && s[j] < window; ++j) near.push_back(j);
-            for (int j = n - 1; j > high && all - s[j + 1] < window; --j) near.push_back(j);
+            for (int j = 0; j < low && s[j] < window; ++j)
+                near.push_back(j);
+            for (int j = n - 1; j > high && all - s[j + 1] < window; --j)
+                near.push_back(j);
         }
         double sum = 0;
         auto& row = rows[piece.elements[i]];
         for (int j : near) {
             const double w = weight(i, j);
-            if (w <= 0) continue;
+            if (w <= 0)
+                continue;
             row.push_back({piece.elements[j], w});
             sum += w;
         }
-        for (auto& part : row) part.weight /= sum;
+        for (auto& part : row)
+            part.weight /= sum;
     }
 }
 
@@ -125,8 +138,10 @@ void add_around(const Surface& surface, const std::vector<std::vector<int>>& at_
         begin = end;
     }
     double sum = 0;
-    for (int f : found) sum += surface.area[f];
-    for (int f : found) row.push_back({f, surface.area[f] / sum});
+    for (int f : found)
+        sum += surface.area[f];
+    for (int f : found)
+        row.push_back({f, surface.area[f] / sum});
 }
 
 } // namespace
@@ -143,7 +158,8 @@ ArcAverage arc_average(const Domain& domain, const Surface& surface) {
             for (int i = 0; i < 4; ++i)
                 if (i < 3 || surface.corners[e][3] != surface.corners[e][2])
                     at_vertex[surface.corners[e][i]].push_back(e);
-        for (int e = 0; e < count; ++e) add_around(surface, at_vertex, e, rows[e]);
+        for (int e = 0; e < count; ++e)
+            add_around(surface, at_vertex, e, rows[e]);
     }
     ArcAverage average;
     average.first.push_back(0);

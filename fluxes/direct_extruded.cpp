@@ -17,7 +17,7 @@ namespace {
 constexpr std::array<double, 2> gauss = {0.21132486540518712, 0.7886751345948129};
 
 class ExtrudedGather {
-  public:
+public:
     ExtrudedGather(const geometry::Domain& domain, const geometry::Surface& surface,
                    const IonTables& tables)
         : surface_(surface), tables_(tables), sky_(domain, surface),
@@ -29,30 +29,33 @@ class ExtrudedGather {
         gathered_.flux.assign(ions, std::vector<double>(count, 0.0));
         over_elements([&](int e) {
             for (double part : gauss)
-                for (const Visible& v : sky_.visible(e, part)) seen_[e].push_back(v);
+                for (const Visible& v : sky_.visible(e, part))
+                    seen_[e].push_back(v);
             for (std::size_t s = 0; s < ions; ++s)
                 gathered_.flux[s][e] =
                     tables_.ions()[s].flux * sky_.flux(tables_.in_plane(static_cast<int>(s)), e);
         });
         for (std::size_t s = 0; s < ions; ++s) {
             flux_row_.push_back(averaged_rows(tables_.flux_tally(static_cast<int>(s)), s));
-            std::vector<double> missing(count);
+            std::vector<double> own(count);
             over_elements([&](int e) {
-                missing[e] = average_.of(gathered_.flux[s], e) -
-                             on_row(tables_.angles(), &flux_row_[s][e * tables_.angles().size()],
-                                    own_angle(e));
+                own[e] = on_row(tables_.angles(), &flux_row_[s][e * tables_.angles().size()],
+                                own_angle(e));
             });
-            missing_.push_back(std::move(missing));
+            own_flux_.push_back(std::move(own));
         }
-        for (std::size_t m = 0; m < tables_.tallies().size(); ++m) tabulate(static_cast<int>(m));
+        for (std::size_t m = 0; m < tables_.tallies().size(); ++m)
+            tabulate(static_cast<int>(m));
         return std::move(gathered_);
     }
 
-  private:
-    template <class Work> void over_elements(const Work& work) const {
+private:
+    template <class Work>
+    void over_elements(const Work& work) const {
         tbb::parallel_for(tbb::blocked_range<int>(0, static_cast<int>(surface_.size()), 64),
                           [&](const tbb::blocked_range<int>& range) {
-                              for (int e = range.begin(); e != range.end(); ++e) work(e);
+                              for (int e = range.begin(); e != range.end(); ++e)
+                                  work(e);
                           });
     }
 
@@ -75,9 +78,11 @@ class ExtrudedGather {
             for (int i = average_.first[e]; i < average_.first[e + 1]; ++i) {
                 const double* part = &raw[average_.parts[i].element * angles];
                 const double weight = average_.parts[i].weight;
-                for (std::size_t k = 0; k < angles; ++k) row[k] += weight * std::max(0.0, part[k]);
+                for (std::size_t k = 0; k < angles; ++k)
+                    row[k] += weight * std::max(0.0, part[k]);
             }
-            for (std::size_t k = 0; k < angles; ++k) rows[e * angles + k] = static_cast<float>(row[k]);
+            for (std::size_t k = 0; k < angles; ++k)
+                rows[e * angles + k] = static_cast<float>(row[k]);
         });
         return rows;
     }
@@ -91,17 +96,20 @@ class ExtrudedGather {
         over_elements([&](int e) {
             float* row = &gathered_.row[m][e * angles];
             const float* flux = &flux_row_[ion][e * angles];
+            const double own = own_flux_[ion][e];
+            const double missing = average_.of(gathered_.flux[ion], e) - own;
             for (std::size_t k = 0; k < angles; ++k)
-                row[k] = static_cast<float>(row[k] * correction(missing_[ion][e], flux[k]));
+                row[k] = static_cast<float>(row[k] * correction(missing, own, flux[k]));
             gathered_.tally[m][e] = on_row(tables_.angles(), row, own_angle(e));
         });
     }
 
-    /// Adds the flux that point samples and the averaged normal miss, in proportion to the tally;
-    /// bounded, so that normals turned out of all beams stay without.
-    static double correction(double missing, double flux) {
-        if (!(flux > 0)) return 1.0;
-        return std::clamp(1.0 + missing / flux, 0.5, 2.0);
+    /// Brings in the flux that point samples and the averaged normal miss: as an amount where the
+    /// turned normal receives more than the own one, in proportion where it receives less; bounded,
+    /// so that normals turned out of all beams stay without.
+    static double correction(double missing, double own_flux, double flux) {
+        const double scale = std::max(own_flux, flux);
+        return scale > 0 ? std::clamp(1.0 + missing / scale, 0.5, 2.0) : 1.0;
     }
 
     const geometry::Surface& surface_;
@@ -111,7 +119,7 @@ class ExtrudedGather {
     std::vector<geometry::Vec3> normal_;
     std::vector<std::vector<Visible>> seen_;
     std::vector<std::vector<float>> flux_row_;  ///< [ion], like Gathered::row
-    std::vector<std::vector<double>> missing_;  ///< [ion][e]: conserved flux minus the row's
+    std::vector<std::vector<double>> own_flux_; ///< [ion][e]: the row at the element's own normal
     DirectIons::Gathered gathered_;
 };
 

@@ -8,6 +8,7 @@
 #include <tbb/parallel_for.h>
 
 #include <algorithm>
+#include <array>
 #include <cmath>
 
 namespace rille::fluxes {
@@ -20,9 +21,10 @@ constexpr std::uint64_t stream = 0x64697265637400ULL; ///< keeps keys apart from
 /// An angle law times the received flux is needed at (directions x angles) per element: linear in a
 /// table over the cosine, whose error (1e-5) is far below the sampling error.
 class AngleTable {
-  public:
+public:
     explicit AngleTable(const AngleLaw& law) {
-        for (int i = 0; i <= cells; ++i) value_.push_back(angle_factor(law, double(i) / cells));
+        for (int i = 0; i <= cells; ++i)
+            value_.push_back(angle_factor(law, double(i) / cells));
         value_.push_back(value_.back());
     }
     double operator()(double cosine) const {
@@ -31,7 +33,7 @@ class AngleTable {
         return value_[i] + (x - i) * (value_[i + 1] - value_[i]);
     }
 
-  private:
+private:
     static constexpr int cells = 2048;
     std::vector<double> value_;
 };
@@ -46,14 +48,15 @@ struct Arrival {
 };
 
 class FullGather {
-  public:
+public:
     FullGather(const geometry::Domain& domain, const geometry::Surface& surface,
                const geometry::RayCaster& caster, const IonTables& tables,
                const DirectIons::Options& options)
         : domain_(domain), surface_(surface), caster_(caster), tables_(tables), options_(options),
           average_(arc_average(domain, surface)), normal_(averaged_normals(surface, average_)),
           per_batch_((std::max(options.directions, 1) + batches - 1) / batches) {
-        for (const Tally& tally : tables.tallies()) angle_factor_.emplace_back(tally.yield.angle);
+        for (const Tally& tally : tables.tallies())
+            angle_factor_.emplace_back(tally.yield.angle);
         for (double a : tables.angles()) {
             cosine_.push_back(std::cos(a));
             sine_.push_back(std::sin(a));
@@ -75,11 +78,12 @@ class FullGather {
         return std::move(gathered_);
     }
 
-  private:
+private:
     void gather(int e, int ion) {
         const std::vector<Arrival> arrivals = trace(e, ion);
         for (std::size_t m = 0; m < tables_.tallies().size(); ++m)
-            if (tables_.tallies()[m].ion == ion) tabulate(static_cast<int>(m), e, arrivals);
+            if (tables_.tallies()[m].ion == ion)
+                tabulate(static_cast<int>(m), e, arrivals);
     }
 
     /// One ray per direction.
@@ -94,28 +98,41 @@ class FullGather {
             const ScrambledPoints points(
                 stream_key(options_.seed, stream, options_.refresh, e, ion, b));
             for (int k = 0; k < per_batch_; ++k) {
-                const IonSample ion_sample =
-                    source.distribution.sample(points.four(static_cast<std::uint32_t>(k)));
+                const auto index = static_cast<std::uint32_t>(k);
+                const IonSample ion_sample = source.distribution.sample(points.four(index));
+                const Vec3 at = point_on(e, points.pair(index, 2));
                 const Vec3 from = -ion_sample.direction;
                 const double facing = from.dot(own);
-                const bool seen = facing > 0
-                                      ? caster_.trace(surface_.centre[e], from, e).kind ==
-                                            Hit::Kind::open
-                                      : reached_from_behind(surface_.centre[e], from);
-                if (!seen) continue;
-                if (facing > 0) gathered_.flux[ion][e] += share * facing / from.z;
-                arrivals.push_back({from.z, from.x * hx + from.y * hy, share / from.z,
-                                    ion_sample.energy_ev, b});
+                const bool seen = facing > 0 ? caster_.trace(at, from, e).kind == Hit::Kind::open
+                                             : reached_from_behind(at, from);
+                if (!seen)
+                    continue;
+                if (facing > 0)
+                    gathered_.flux[ion][e] += share * facing / from.z;
+                arrivals.push_back(
+                    {from.z, from.x * hx + from.y * hy, share / from.z, ion_sample.energy_ev, b});
             }
         }
         return arrivals;
     }
 
+    /// Point spread evenly over the element (two triangles with the diagonal b-d), so that the flux
+    /// is the element's mean and not that of its centre.
+    Vec3 point_on(int e, const std::array<double, 2>& u) const {
+        const auto& corner = surface_.corners[e];
+        const Vec3 a = surface_.vertices[corner[0]], b = surface_.vertices[corner[1]];
+        const Vec3 c = surface_.vertices[corner[2]], d = surface_.vertices[corner[3]];
+        const double first = (b - a).cross(d - a).length(), second = (b - c).cross(d - c).length();
+        const double share = first / (first + second);
+        const bool low = u[0] < share || second == 0;
+        const double v = std::sqrt(low ? u[0] / share : (u[0] - share) / (1 - share));
+        return (low ? a : c) * (1 - v) + (b * (1 - u[1]) + d * u[1]) * v;
+    }
     /// A direction behind the element's own plane matters only for turned normals, next to a convex
     /// edge: an ion from there must get within a cell and a half of the element.
-    bool reached_from_behind(const Vec3& centre, const Vec3& from) const {
-        const double path = (caster_.z_open() - centre.z) / from.z;
-        Vec3 origin = centre + from * path, direction = -from;
+    bool reached_from_behind(const Vec3& at, const Vec3& from) const {
+        const double path = (caster_.z_open() - at.z) / from.z;
+        Vec3 origin = at + from * path, direction = -from;
         fold(origin.x, direction.x, domain_.x_min(), domain_.width_x());
         fold(origin.y, direction.y, domain_.y_min(), domain_.width_y());
         const Hit hit = caster_.trace(origin, direction, -1);
@@ -141,15 +158,19 @@ class FullGather {
         double* batch = &gathered_.batch[m][std::size_t(e) * batches];
         for (const Arrival& a : arrivals) {
             const double strength = a.weight * yield.scale * energy_yield(yield.energy, a.energy);
-            if (strength == 0) continue;
+            if (strength == 0)
+                continue;
             const double own = own_c * a.up + own_s * a.along;
-            if (own > 0) batch[a.batch] += batches * strength * own * factor(own);
+            if (own > 0)
+                batch[a.batch] += batches * strength * own * factor(own);
             for (std::size_t k = 0; k < angles; ++k) {
                 const double c = cosine_[k] * a.up + sine_[k] * a.along;
-                if (c > 0) row[k] += strength * c * factor(c);
+                if (c > 0)
+                    row[k] += strength * c * factor(c);
             }
         }
-        for (int b = 0; b < batches; ++b) gathered_.tally[m][e] += batch[b] / batches;
+        for (int b = 0; b < batches; ++b)
+            gathered_.tally[m][e] += batch[b] / batches;
         for (std::size_t k = 0; k < angles; ++k)
             gathered_.row[m][std::size_t(e) * angles + k] = static_cast<float>(row[k]);
     }

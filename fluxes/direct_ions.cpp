@@ -6,8 +6,10 @@
 namespace rille::fluxes {
 
 double on_row(const std::vector<double>& angles, const float* row, double angle) {
-    if (angle <= angles.front()) return row[0];
-    if (angle >= angles.back()) return row[angles.size() - 1];
+    if (angle <= angles.front())
+        return row[0];
+    if (angle >= angles.back())
+        return row[angles.size() - 1];
     const std::size_t k =
         std::upper_bound(angles.begin(), angles.end(), angle) - angles.begin() - 1;
     const double part = (angle - angles[k]) / (angles[k + 1] - angles[k]);
@@ -29,7 +31,9 @@ DirectIons::DirectIons(const geometry::Domain& domain, const geometry::Surface& 
 
 DirectIons::~DirectIons() = default;
 
-double DirectIons::tally(int m, int element) const { return gathered_.tally[m][element]; }
+double DirectIons::tally(int m, int element) const {
+    return gathered_.tally[m][element];
+}
 
 double DirectIons::tally_at(int m, int element, double angle) const {
     const std::vector<double>& angles = tables_->angles();
@@ -37,12 +41,17 @@ double DirectIons::tally_at(int m, int element, double angle) const {
 }
 
 double DirectIons::tally_batch(int b, int m, int element) const {
-    if (gathered_.batch.empty()) return tally(m, element);
+    if (gathered_.batch.empty())
+        return tally(m, element);
     return gathered_.batch[m][std::size_t(element) * 8 + b];
 }
 
-double DirectIons::flux(int s, int element) const { return gathered_.flux[s][element]; }
+double DirectIons::flux(int s, int element) const {
+    return gathered_.flux[s][element];
+}
 
-std::vector<double> DirectIons::rate_angles() const { return tables_->angles(); }
+std::vector<double> DirectIons::rate_angles() const {
+    return tables_->angles();
+}
 
 } // namespace rille::fluxes

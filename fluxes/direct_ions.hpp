@@ -22,7 +22,7 @@ namespace rille::fluxes {
 /// Tallies are averages over about five cells of surface, never across a corner, that keep the flux
 /// of the elements averaged over.
 class DirectIons {
-  public:
+public:
     struct Options {
         int directions = 256; ///< full only, per ion species; rounded up to a multiple of 8
         std::uint64_t seed = 1;
@@ -54,7 +54,7 @@ class DirectIons {
         std::vector<std::vector<double>> batch; ///< [tally][e * 8 + b]; extruded: empty
     };
 
-  private:
+private:
     std::shared_ptr<const IonTables> tables_;
     Gathered gathered_;
 };

@@ -68,10 +68,10 @@ void Exchange::Tracing::extruded(int element) {
     const bool covered = sky->covers(element);
     double skip_from = 1, skip = 0;
     if (covered) {
-        const SkyInterval start = sky->at(element, 0), end = sky->at(element, 1);
-        if (!start.dark() && !end.dark() && start.left < end.right) {
-            skip_from = std::sin(std::max(start.left - psi, -0.5 * pi));
-            skip = std::max(0.0, std::sin(std::min(end.right - psi, 0.5 * pi)) - skip_from);
+        const SkyInterval common = sky->common(element);
+        if (!common.dark()) {
+            skip_from = std::sin(std::max(common.left - psi, -0.5 * pi));
+            skip = std::max(0.0, std::sin(std::min(common.right - psi, 0.5 * pi)) - skip_from);
         }
     }
     for (int batch = 0; batch < batches; ++batch) {

@@ -11,8 +11,12 @@ namespace {
 
 constexpr double pi = 3.14159265358979323846;
 
-double normal_cdf(double x) { return 0.5 * std::erfc(-x / std::sqrt(2.0)); }
-double normal_pdf(double x) { return std::exp(-0.5 * x * x) / std::sqrt(2.0 * pi); }
+double normal_cdf(double x) {
+    return 0.5 * std::erfc(-x / std::sqrt(2.0));
+}
+double normal_pdf(double x) {
+    return std::exp(-0.5 * x * x) / std::sqrt(2.0 * pi);
+}
 
 /// Five-point Gauss-Hermite rule for a standard normal variable, the two signs taken together.
 constexpr std::array<double, 3> hermite_point = {0.0, 1.3556261799742659, 2.8569700138728056};
@@ -47,11 +51,14 @@ std::vector<double> symmetric_edges(const std::function<double(double)>& share_a
             (share_above(middle) > level ? low : high) = middle;
         }
         floor = 0.5 * (low + high);
-        if (upper.empty() ? floor > 0 : floor > upper.back() * (1 + 1e-12)) upper.push_back(floor);
+        if (upper.empty() ? floor > 0 : floor > upper.back() * (1 + 1e-12))
+            upper.push_back(floor);
     }
-    if (upper.empty() || upper.back() < largest) upper.push_back(largest);
+    if (upper.empty() || upper.back() < largest)
+        upper.push_back(largest);
     std::vector<double> edges;
-    for (auto u = upper.rbegin(); u != upper.rend(); ++u) edges.push_back(-*u);
+    for (auto u = upper.rbegin(); u != upper.rend(); ++u)
+        edges.push_back(-*u);
     edges.push_back(0);
     edges.insert(edges.end(), upper.begin(), upper.end());
     return edges;
@@ -59,8 +66,10 @@ std::vector<double> symmetric_edges(const std::function<double(double)>& share_a
 
 /// Slope at an edge; 90 deg stands for infinity.
 double slope_of(double phi) {
-    if (phi >= 0.5 * pi) return HUGE_VAL;
-    if (phi <= -0.5 * pi) return -HUGE_VAL;
+    if (phi >= 0.5 * pi)
+        return HUGE_VAL;
+    if (phi <= -0.5 * pi)
+        return -HUGE_VAL;
     return std::tan(phi);
 }
 
@@ -70,7 +79,8 @@ void sum_up(InPlane& plane) {
     plane.share.assign(bins + 1, 0.0);
     plane.moment.assign(bins + 1, 0.0);
     double total = 0;
-    for (const auto& node : plane.nodes) total += node.weight;
+    for (const auto& node : plane.nodes)
+        total += node.weight;
     for (auto& node : plane.nodes) {
         node.weight /= total;
         plane.share[node.bin + 1] += node.weight;
@@ -83,8 +93,7 @@ void sum_up(InPlane& plane) {
 }
 
 /// Every ion at one slope: a bin too narrow to be seen.
-InPlane single_slope(double slope_x, double slope_y,
-                     std::vector<InPlane::EnergyShare> spectrum) {
+InPlane single_slope(double slope_x, double slope_y, std::vector<InPlane::EnergyShare> spectrum) {
     constexpr double half_width = 1e-9;
     InPlane plane;
     const double phi = std::atan(slope_x);
@@ -118,8 +127,10 @@ std::vector<Layer> thermal_layers(const ThermalFall& law) {
                               std::sqrt(0.5 * law.transverse_ev / energy)});
         }
     double sum = 0;
-    for (const Layer& layer : layers) sum += layer.weight;
-    for (Layer& layer : layers) layer.weight /= sum;
+    for (const Layer& layer : layers)
+        sum += layer.weight;
+    for (Layer& layer : layers)
+        layer.weight /= sum;
     return layers;
 }
 
@@ -133,7 +144,8 @@ void add_layers(InPlane& plane, const std::vector<Layer>& layers, bool fixed_ene
         const double a = low / layer.sigma, b = high / layer.sigma;
         const double mass = a > 0 ? normal_cdf(-a) - normal_cdf(-b) : normal_cdf(b) - normal_cdf(a);
         const double weight = mass * layer.weight * hermite_weight[point];
-        if (!(weight > 1e-18)) continue;
+        if (!(weight > 1e-18))
+            continue;
         const double from = std::max(low, -1e9), to = std::min(high, 1e9);
         const double slope =
             std::clamp(layer.sigma * (normal_pdf(a) - normal_pdf(b)) / mass, from, to);
@@ -152,8 +164,10 @@ void add_layers(InPlane& plane, const std::vector<Layer>& layers, bool fixed_ene
         sum.cos_polar += weight * node.cos_polar;
         spectrum.push_back({energy, weight});
     }
-    if (!(sum.weight > 0)) return;
-    for (auto& part : spectrum) part.share /= sum.weight;
+    if (!(sum.weight > 0))
+        return;
+    for (auto& part : spectrum)
+        part.share /= sum.weight;
     sum.slope /= sum.weight;
     sum.cos_polar /= sum.weight;
     plane.nodes.push_back(sum);
@@ -165,13 +179,13 @@ InPlane from_layers(const std::vector<Layer>& layers, bool fixed_energy) {
     plane.angle = symmetric_edges(
         [&](double phi) {
             double sum = 0;
-            for (const Layer& l : layers) sum += l.weight * normal_cdf(-slope_of(phi) / l.sigma);
+            for (const Layer& l : layers)
+                sum += l.weight * normal_cdf(-slope_of(phi) / l.sigma);
             return sum;
         },
         0.5 * pi);
     // Layers of nearly one spread share a node; the energies stay apart in its spectrum.
-    const bool merge = layers.front().sigma < 1.2 * layers.back().sigma ||
-                       layers.size() == 1;
+    const bool merge = layers.front().sigma < 1.2 * layers.back().sigma || layers.size() == 1;
     for (int bin = 0; bin + 1 < static_cast<int>(plane.angle.size()); ++bin)
         for (std::size_t point = 0; point < hermite_point.size(); ++point)
             add_layers(plane, layers, fixed_energy, bin, point, merge);
@@ -190,18 +204,21 @@ std::vector<Ring> rings_of(const IonHistogram& law, InPlane& plane) {
     std::vector<Ring> rings;
     for (std::size_t a = 0; a + 1 < law.cosine.size(); ++a) {
         const double column = law.angle_cdf[a + 1] - law.angle_cdf[a];
-        if (!(column > 0)) continue;
+        if (!(column > 0))
+            continue;
         std::vector<InPlane::EnergyShare> spectrum;
         for (std::size_t e = 0; e + 1 < law.energy.size(); ++e) {
             const double share = law.energy_cdf[a][e + 1] - law.energy_cdf[a][e];
-            if (!(share > 0)) continue;
+            if (!(share > 0))
+                continue;
             const double width = law.energy[e + 1] - law.energy[e];
             for (int i = 0; i < energies_per_bin; ++i)
                 spectrum.push_back({law.energy[e] + width * (i + 0.5) / energies_per_bin,
                                     share / energies_per_bin});
         }
         const double width = std::acos(law.cosine[a + 1]) - std::acos(law.cosine[a]);
-        const int parts = std::clamp(static_cast<int>(std::ceil(width / (0.5 * pi / 180))), 3, 200);
+        const int wanted = static_cast<int>(std::ceil(width / (0.5 * pi / 180)));
+        const int parts = column < 1e-4 ? 3 : std::clamp(wanted, 3, 200);
         for (int i = 0; i < parts; ++i) {
             const double c =
                 law.cosine[a] + (law.cosine[a + 1] - law.cosine[a]) * (i + 0.5) / parts;
@@ -221,11 +238,13 @@ InPlane from_histogram(const IonHistogram& law) {
     InPlane plane;
     const std::vector<Ring> rings = rings_of(law, plane);
     double largest = 0;
-    for (const Ring& ring : rings) largest = std::max(largest, std::atan(ring.tangent));
+    for (const Ring& ring : rings)
+        largest = std::max(largest, std::atan(ring.tangent));
     plane.angle = symmetric_edges(
         [&](double phi) {
             double sum = 0;
-            for (const Ring& ring : rings) sum += ring.weight * ring_azimuth(ring, slope_of(phi));
+            for (const Ring& ring : rings)
+                sum += ring.weight * ring_azimuth(ring, slope_of(phi));
             return sum / pi;
         },
         largest);
@@ -233,7 +252,8 @@ InPlane from_histogram(const IonHistogram& law) {
         for (const Ring& ring : rings) {
             const double from = ring_azimuth(ring, slope_of(plane.angle[bin + 1]));
             const double to = ring_azimuth(ring, slope_of(plane.angle[bin]));
-            if (!(to - from > 1e-14)) continue;
+            if (!(to - from > 1e-14))
+                continue;
             const double slope = ring.tangent * (std::sin(to) - std::sin(from)) / (to - from);
             plane.nodes.push_back(
                 {bin, slope, ring.cosine, ring.weight * (to - from) / pi, ring.spectrum});
@@ -245,9 +265,11 @@ InPlane from_histogram(const IonHistogram& law) {
 struct Resolve {
     InPlane operator()(const ThermalFall& law) const {
         const std::vector<Layer> layers = thermal_layers(law);
-        if (law.transverse_ev > 0) return from_layers(layers, false);
+        if (law.transverse_ev > 0)
+            return from_layers(layers, false);
         std::vector<InPlane::EnergyShare> spectrum;
-        for (const Layer& layer : layers) spectrum.push_back({layer.normal_ev, layer.weight});
+        for (const Layer& layer : layers)
+            spectrum.push_back({layer.normal_ev, layer.weight});
         return single_slope(0, 0, std::move(spectrum));
     }
     InPlane operator()(const IonHistogram& law) const { return from_histogram(law); }
@@ -262,14 +284,18 @@ struct Resolve {
 
 } // namespace
 
-InPlane resolve_in_plane(const IonLaw& law) { return std::visit(Resolve{}, law); }
+InPlane resolve_in_plane(const IonLaw& law) {
+    return std::visit(Resolve{}, law);
+}
 
 InPlane::Place InPlane::place(double phi) const {
     const int bins = static_cast<int>(angle.size()) - 1;
-    if (phi <= angle.front()) return {0, 0.0};
-    if (phi >= angle.back()) return {bins - 1, 1.0};
-    const int bin = static_cast<int>(std::upper_bound(angle.begin(), angle.end(), phi) -
-                                     angle.begin()) - 1;
+    if (phi <= angle.front())
+        return {0, 0.0};
+    if (phi >= angle.back())
+        return {bins - 1, 1.0};
+    const int bin =
+        static_cast<int>(std::upper_bound(angle.begin(), angle.end(), phi) - angle.begin()) - 1;
     // sin b - sin a = 2 sin((b - a)/2) cos((a + b)/2): keeps its digits in narrow bins.
     const auto gap = [](double a, double b) {
         return std::sin(0.5 * (b - a)) * std::cos(0.5 * (a + b));
@@ -285,8 +311,10 @@ double InPlane::share_below(double phi) const {
 
 double InPlane::moment_below(double phi) const {
     const Place p = place(phi);
-    if (p.part == 0) return moment[p.bin];
-    if (p.part == 1) return moment[p.bin + 1];
+    if (p.part == 0)
+        return moment[p.bin];
+    if (p.part == 1)
+        return moment[p.bin + 1];
     // Uniform in sin(phi) inside the bin, then shifted so that the bin's own moment is kept.
     const double a = angle[p.bin], b = angle[p.bin + 1];
     const double whole = std::sin(b) - std::sin(a);

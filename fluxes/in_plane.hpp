@@ -26,10 +26,10 @@ struct InPlane {
         double share = 0; ///< of the spectrum, sum 1
     };
 
-    std::vector<double> angle;    ///< edges [rad], strictly increasing, within [-pi/2, pi/2]
-    std::vector<double> share;    ///< at the edges: flux at smaller angles, 0 to 1
-    std::vector<double> moment;   ///< at the edges: integral of the slope over that flux
-    std::vector<Node> nodes;      ///< ordered by bin
+    std::vector<double> angle;  ///< edges [rad], strictly increasing, within [-pi/2, pi/2]
+    std::vector<double> share;  ///< at the edges: flux at smaller angles, 0 to 1
+    std::vector<double> moment; ///< at the edges: integral of the slope over that flux
+    std::vector<Node> nodes;    ///< ordered by bin
     std::vector<std::vector<EnergyShare>> spectra;
 
     /// Bin that holds phi and the part of the bin below it, clamped to the ends.

@@ -13,10 +13,10 @@ struct ThermalFall {
     double drop_ev, transverse_ev, normal_ev;
 };
 struct IonHistogram {
-    std::vector<double> energy;               ///< edges [eV]
-    std::vector<double> cosine;               ///< edges, decreasing from the surface normal
-    std::vector<std::vector<double>> weight;  ///< [energy bin][angle bin], sum 1
-    std::vector<double> angle_cdf;            ///< at the angle edges
+    std::vector<double> energy;                  ///< edges [eV]
+    std::vector<double> cosine;                  ///< edges, decreasing from the surface normal
+    std::vector<std::vector<double>> weight;     ///< [energy bin][angle bin], sum 1
+    std::vector<double> angle_cdf;               ///< at the angle edges
     std::vector<std::vector<double>> energy_cdf; ///< [angle bin] at the energy edges
 };
 struct IonBeam {

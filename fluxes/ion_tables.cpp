@@ -6,6 +6,7 @@
 
 #include <algorithm>
 #include <cmath>
+#include <initializer_list>
 
 namespace rille::fluxes {
 namespace {
@@ -19,8 +20,8 @@ struct Grazing {
 };
 
 /// Spacing wanted at angle psi: a quarter of the spread near grazing incidence (the flux there is
-/// spread * (x + ...) with curvature 1 / spread), growing with the distance; yields peak at 50 to 80
-/// deg and need about a degree; the rest is a cosine.
+/// spread * (x + ...) with curvature 1 / spread), growing with the distance; yields peak at 50 to
+/// 80 deg and need about a degree; the rest is a cosine.
 double spacing_at(double psi, const std::vector<Grazing>& grazing, double coarsen) {
     const double tilt = std::fabs(psi) / degree;
     double step = (tilt < 40 ? 2.5 : tilt < 90 ? 1.25 : 6.0) * degree;
@@ -35,12 +36,14 @@ std::vector<double> march(double from, double to, const std::vector<Grazing>& gr
                           double coarsen) {
     std::vector<double> stops = {from, to};
     for (const Grazing& g : grazing)
-        if (g.at > from && g.at < to) stops.push_back(g.at);
+        if (g.at > from && g.at < to)
+            stops.push_back(g.at);
     std::sort(stops.begin(), stops.end());
     std::vector<double> angles = {from};
     for (std::size_t s = 1; s < stops.size(); ++s) {
         const double begin = angles.back(), end = stops[s];
-        if (!(end - begin > 1e-9)) continue;
+        if (!(end - begin > 1e-9))
+            continue;
         std::vector<double> walk = {begin};
         while (walk.back() < end) {
             const double here = spacing_at(walk.back(), grazing, coarsen);
@@ -55,38 +58,83 @@ std::vector<double> march(double from, double to, const std::vector<Grazing>& gr
     return angles;
 }
 
+struct AppendYield {
+    std::vector<double>& to;
+
+    void operator()(const SquareRootLaw& l) const { put({0, l.amplitude, l.threshold_ev}); }
+    void operator()(const YamamuraTawaraLaw& l) const {
+        put({1, l.z1, l.m1, l.z2, l.m2, l.us_ev, l.q, l.w, l.s});
+    }
+    void operator()(const BohdanskyLaw& l) const { put({2, l.q, l.etf_ev, l.threshold_ev}); }
+    void operator()(const EcksteinLaw& l) const {
+        put({3, l.lambda, l.q, l.mu, l.eps_per_ev, l.threshold_ev});
+    }
+    void operator()(const ConstantLaw& l) const { put({4, l.value}); }
+    void operator()(const FlatAngle&) const { put({0}); }
+    void operator()(const PlateauCosine& l) const { put({1, l.plateau_deg}); }
+    void operator()(const PlateauLinear& l) const { put({2, l.plateau_deg}); }
+    void operator()(const YamamuraAngle& l) const { put({3, l.f, l.optimum_deg}); }
+    void put(std::initializer_list<double> numbers) const { to.insert(to.end(), numbers); }
+};
+
+std::vector<double> content_of(geometry::Symmetry symmetry, const std::vector<IonSource>& ions,
+                               const std::vector<Tally>& tallies) {
+    std::vector<double> content = {symmetry == geometry::Symmetry::extruded ? 0.0 : 1.0,
+                                   static_cast<double>(ions.size())};
+    for (const IonSource& ion : ions) {
+        content.push_back(ion.flux);
+        ion.distribution.append_content(content);
+    }
+    for (const Tally& tally : tallies) {
+        content.push_back(tally.ion);
+        content.push_back(tally.yield.scale);
+        std::visit(AppendYield{content}, tally.yield.energy);
+        std::visit(AppendYield{content}, tally.yield.angle);
+    }
+    return content;
+}
+
 } // namespace
 
 IonTables::IonTables(geometry::Symmetry symmetry, std::vector<IonSource> ions,
                      std::vector<Tally> tallies)
-    : ions_(std::move(ions)), tallies_(std::move(tallies)) {
+    : ions_(std::move(ions)), tallies_(std::move(tallies)),
+      content_(content_of(symmetry, ions_, tallies_)) {
     place_angles(symmetry);
-    if (symmetry != geometry::Symmetry::extruded) return;
-    for (const Tally& tally : tallies_) table_.push_back(tabulate(tally));
+    if (symmetry != geometry::Symmetry::extruded)
+        return;
+    for (const Tally& tally : tallies_)
+        table_.push_back(tabulate(tally));
     for (int s = 0; s < static_cast<int>(ions_.size()); ++s)
         table_.push_back(tabulate({s, {ConstantLaw{1.0}, FlatAngle{}, 1.0}}));
+}
+
+bool IonTables::serves(geometry::Symmetry symmetry, const std::vector<IonSource>& ions,
+                       const std::vector<Tally>& tallies) const {
+    return content_ == content_of(symmetry, ions, tallies);
 }
 
 void IonTables::place_angles(geometry::Symmetry symmetry) {
     const bool extruded = symmetry == geometry::Symmetry::extruded;
     std::vector<Grazing> grazing;
     for (const IonSource& ion : ions_) {
-        const double spread =
-            std::clamp(ion.distribution.spread_rad(), 0.1 * degree, 10 * degree);
+        const double spread = std::clamp(ion.distribution.spread_rad(), 0.1 * degree, 10 * degree);
         const double mean = ion.distribution.mean_rad();
         for (double side : {-0.5 * pi, 0.5 * pi}) {
             const double at = mean + side;
             const bool known = std::any_of(grazing.begin(), grazing.end(), [&](const Grazing& g) {
                 return std::fabs(g.at - at) < 0.1 * spread && g.spread <= spread;
             });
-            if (!known) grazing.push_back({at, spread});
+            if (!known)
+                grazing.push_back({at, spread});
         }
     }
     const double from = extruded ? -pi : 0.0;
     const std::size_t most = extruded ? 240 : 64;
     for (double coarsen = 1;; coarsen *= 1.1) {
         angles_ = march(from, pi, grazing, coarsen);
-        if (angles_.size() <= most) break;
+        if (angles_.size() <= most)
+            break;
     }
 }
 
@@ -107,7 +155,8 @@ std::vector<double> IonTables::tabulate(const Tally& t) const {
             const double c = std::cos(angles_[k]), s = std::sin(angles_[k]);
             for (const InPlane::Node& node : plane.nodes) {
                 const double received = c + node.slope * s; // (r . n) / r_z
-                if (received <= 0) continue;
+                if (received <= 0)
+                    continue;
                 table[(node.bin + 1) * count + k] +=
                     node.weight * energy[node.spectrum] * received *
                     angle_factor(t.yield.angle, received * node.cos_polar);
@@ -124,7 +173,8 @@ void IonTables::add(int tally, const InPlane::Place& place, double factor, doubl
     const double* low = table_[tally].data() + place.bin * count;
     const double* high = low + count;
     const double a = factor * (1 - place.part), b = factor * place.part;
-    for (std::size_t k = 0; k < count; ++k) row[k] += a * low[k] + b * high[k];
+    for (std::size_t k = 0; k < count; ++k)
+        row[k] += a * low[k] + b * high[k];
 }
 
 } // namespace rille::fluxes

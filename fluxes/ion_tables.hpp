@@ -16,8 +16,11 @@ namespace rille::fluxes {
 /// extruded: T_m(psi, phi), the tally m on a surface of normal angle psi by the ions from in-plane
 /// angles below phi [nm^-2 s^-1]; what a surface receives is a difference of two T.
 class IonTables {
-  public:
+public:
     IonTables(geometry::Symmetry, std::vector<IonSource>, std::vector<Tally>);
+
+    /// Whether tables built from these would be the same.
+    bool serves(geometry::Symmetry, const std::vector<IonSource>&, const std::vector<Tally>&) const;
 
     const std::vector<IonSource>& ions() const { return ions_; }
     const std::vector<Tally>& tallies() const { return tallies_; }
@@ -31,13 +34,14 @@ class IonTables {
     void add(int tally, const InPlane::Place&, double factor, double* row) const;
     const InPlane& in_plane(int ion) const { return ions_[ion].distribution.in_plane(); }
 
-  private:
+private:
     void place_angles(geometry::Symmetry);
     std::vector<double> tabulate(const Tally&) const;
 
     std::vector<IonSource> ions_;
     std::vector<Tally> tallies_;
     std::vector<double> angles_;
+    std::vector<double> content_;            ///< everything that the tables follow from
     std::vector<std::vector<double>> table_; ///< [tally][edge * angles + k]
 };
 

@@ -16,7 +16,8 @@ constexpr double pi = 3.14159265358979323846;
 constexpr double degree = pi / 180.0;
 
 void require(bool condition, const char* message) {
-    if (!condition) throw std::invalid_argument(message);
+    if (!condition)
+        throw std::invalid_argument(message);
 }
 
 Vec3 downwards(double slope, double azimuth) {
@@ -32,7 +33,8 @@ struct BinDraw {
 BinDraw draw(const std::vector<double>& cdf, double u) {
     const auto above = std::upper_bound(cdf.begin(), cdf.end(), u);
     std::size_t i = above == cdf.end() ? cdf.size() - 1 : std::size_t(above - cdf.begin());
-    while (i > 1 && !(cdf[i] > cdf[i - 1])) --i;
+    while (i > 1 && !(cdf[i] > cdf[i - 1]))
+        --i;
     const double span = cdf[i] - cdf[i - 1];
     return {i - 1, span > 0 ? std::clamp((u - cdf[i - 1]) / span, 0.0, 1.0) : 0.5};
 }
@@ -69,7 +71,8 @@ struct MeanEnergy {
     double operator()(const IonHistogram& law) const {
         double sum = 0;
         for (std::size_t e = 0; e < law.weight.size(); ++e)
-            for (double w : law.weight[e]) sum += w * 0.5 * (law.energy[e] + law.energy[e + 1]);
+            for (double w : law.weight[e])
+                sum += w * 0.5 * (law.energy[e] + law.energy[e + 1]);
         return sum;
     }
     double operator()(const IonBeam& law) const { return law.energy_ev; }
@@ -82,7 +85,8 @@ struct ShareWithin {
 
     /// 1 - exp(-(V/Tperp) tan^2) / (1 + (Tpar/Tperp) tan^2), the two exponentials integrated.
     double operator()(const ThermalFall& law) const {
-        if (law.transverse_ev == 0) return 1.0;
+        if (law.transverse_ev == 0)
+            return 1.0;
         const double t2 = tangent * tangent / law.transverse_ev;
         return 1.0 - std::exp(-law.drop_ev * t2) / (1.0 + law.normal_ev * t2);
     }
@@ -103,6 +107,28 @@ struct ShareWithin {
     double operator()(const GaussianSlopes& law) const {
         const double x = tangent / law.tan_sigma;
         return -std::expm1(-0.5 * x * x);
+    }
+};
+
+struct AppendContent {
+    std::vector<double>& to;
+
+    void operator()(const ThermalFall& law) const {
+        to.insert(to.end(), {0, law.drop_ev, law.transverse_ev, law.normal_ev});
+    }
+    void operator()(const IonHistogram& law) const {
+        to.push_back(1);
+        to.push_back(static_cast<double>(law.energy.size()));
+        to.insert(to.end(), law.energy.begin(), law.energy.end());
+        to.insert(to.end(), law.cosine.begin(), law.cosine.end());
+        for (const auto& row : law.weight)
+            to.insert(to.end(), row.begin(), row.end());
+    }
+    void operator()(const IonBeam& law) const {
+        to.insert(to.end(), {2, law.energy_ev, law.direction.x, law.direction.y, law.direction.z});
+    }
+    void operator()(const GaussianSlopes& law) const {
+        to.insert(to.end(), {3, law.energy_ev, law.tan_sigma});
     }
 };
 
@@ -159,19 +185,24 @@ IonDistribution IonDistribution::histogram(std::vector<double> energy_edges_ev,
     }
     require(sum > 0, "the weights are all zero");
     IonHistogram law;
-    for (double a : angle_edges_deg) law.cosine.push_back(std::cos(a * degree));
-    if (angle_edges_deg.back() == 90) law.cosine.back() = 0;
+    for (double a : angle_edges_deg)
+        law.cosine.push_back(std::cos(a * degree));
+    if (angle_edges_deg.back() == 90)
+        law.cosine.back() = 0;
     law.angle_cdf.assign(1, 0.0);
     for (std::size_t a = 0; a < bins; ++a) {
         std::vector<double> cdf(1, 0.0);
-        for (auto& row : weight) cdf.push_back(cdf.back() + (row[a] /= sum));
+        for (auto& row : weight)
+            cdf.push_back(cdf.back() + (row[a] /= sum));
         const double column = cdf.back();
         law.angle_cdf.push_back(law.angle_cdf.back() + column);
         if (column > 0)
-            for (double& c : cdf) c /= column;
+            for (double& c : cdf)
+                c /= column;
         law.energy_cdf.push_back(std::move(cdf));
     }
-    for (double& c : law.angle_cdf) c /= law.angle_cdf.back();
+    for (double& c : law.angle_cdf)
+        c /= law.angle_cdf.back();
     law.energy = std::move(energy_edges_ev);
     law.weight = std::move(weight);
     return IonDistribution(std::make_shared<Impl>(IonLaw(std::move(law))));
@@ -192,11 +223,15 @@ IonSample IonDistribution::sample(const std::array<double, 4>& u) const {
     return std::visit(Sampler{u}, impl_->law);
 }
 
-double IonDistribution::mean_energy_ev() const { return std::visit(MeanEnergy{}, impl_->law); }
+double IonDistribution::mean_energy_ev() const {
+    return std::visit(MeanEnergy{}, impl_->law);
+}
 
 double IonDistribution::share_within_deg(double angle_deg) const {
-    if (angle_deg < 0) return 0.0;
-    if (angle_deg >= 90) return 1.0;
+    if (angle_deg < 0)
+        return 0.0;
+    if (angle_deg >= 90)
+        return 1.0;
     return std::visit(ShareWithin{std::tan(angle_deg * degree)}, impl_->law);
 }
 
@@ -211,7 +246,8 @@ double IonDistribution::median_angle_deg() const {
 
 double IonDistribution::mean_rad() const {
     double sum = 0;
-    for (const InPlane::Node& node : in_plane().nodes) sum += node.weight * std::atan(node.slope);
+    for (const InPlane::Node& node : in_plane().nodes)
+        sum += node.weight * std::atan(node.slope);
     return sum;
 }
 
@@ -225,6 +261,12 @@ double IonDistribution::spread_rad() const {
     return std::sqrt(sum);
 }
 
-const InPlane& IonDistribution::in_plane() const { return impl_->in_plane(); }
+void IonDistribution::append_content(std::vector<double>& numbers) const {
+    std::visit(AppendContent{numbers}, impl_->law);
+}
+
+const InPlane& IonDistribution::in_plane() const {
+    return impl_->in_plane();
+}
 
 } // namespace rille::fluxes

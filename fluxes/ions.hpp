@@ -24,11 +24,11 @@ struct InPlane; // ion distribution seen in the plane of a trench: in_plane.hpp
 /// distribution through the wafer plane (no further cosine belongs to it). Azimuthally symmetric
 /// about the wafer normal, apart from `beam`. A value; copies share their data.
 class IonDistribution {
-  public:
-    /// Collisionless sheath: energy gain `drop_ev` (sheath voltage plus Te/2), transverse and normal
-    /// temperature [eV] at the sheath edge. Et = -Tperp ln u1, Ez = drop - Tpar ln u2 (thermal
-    /// ions in free fall; derived from Liouville's theorem). All >= 0, drop + normal > 0, else
-    /// std::invalid_argument. drop = 0 with equal temperatures is the cosine law.
+public:
+    /// Collisionless sheath: energy gain `drop_ev` (sheath voltage plus Te/2), transverse and
+    /// normal temperature [eV] at the sheath edge. Et = -Tperp ln u1, Ez = drop - Tpar ln u2
+    /// (thermal ions in free fall; derived from Liouville's theorem). All >= 0, drop + normal > 0,
+    /// else std::invalid_argument. drop = 0 with equal temperatures is the cosine law.
     static IonDistribution thermal_fall(double drop_ev, double transverse_ev, double normal_ev);
     /// Histogram: weight[e][a] = share of the flux in energy bin e and polar-angle bin a. Inside a
     /// bin uniform in energy and in cos(angle). Edges strictly increasing; angles in deg from the
@@ -51,10 +51,12 @@ class IonDistribution {
     /// Mean and standard deviation of the in-plane angle [rad], for placing angle nodes.
     double mean_rad() const;
     double spread_rad() const;
+    /// Appends the numbers that define the distribution; equal numbers, equal distribution.
+    void append_content(std::vector<double>& numbers) const;
     /// Resolved by in-plane angle: quadrature nodes for everything that a trench needs.
     const InPlane& in_plane() const;
 
-  private:
+private:
     struct Impl;
     explicit IonDistribution(std::shared_ptr<const Impl>);
     std::shared_ptr<const Impl> impl_;

@@ -146,15 +146,25 @@ double Sky::horizon(int element, double t, bool rightwards) const {
     return -walk.angle();
 }
 
-SkyInterval Sky::at(int element, double t) const {
+SkyInterval Sky::between(int element, double t_left, double t_right) const {
     if (!covers(element))
         return {};
     SkyInterval sky;
-    sky.left = std::max(horizon(element, t, false), -pi / 2);
-    sky.right = std::min(horizon(element, t, true), pi / 2);
+    sky.left = std::max(horizon(element, t_left, false), -pi / 2);
+    if (!(sky.left < pi / 2))
+        return {};
+    sky.right = std::min(horizon(element, t_right, true), pi / 2);
     if (sky.dark())
         return {};
     return sky;
+}
+
+SkyInterval Sky::at(int element, double t) const {
+    return between(element, t, t);
+}
+
+SkyInterval Sky::common(int element) const {
+    return between(element, 0, 1);
 }
 
 double Sky::cosine_flux(int element) const {
@@ -162,14 +172,12 @@ double Sky::cosine_flux(int element) const {
         return 0;
     const int k = position_[element];
     const double psi = std::atan2(path_[k].z - path_[k + 1].z, path_[k + 1].x - path_[k].x);
-    // Gauss-Legendre, four points: the flux is smooth along a segment but for kinks where the
+    // Gauss-Legendre, three points: the flux is smooth along a segment but for kinks where the
     // vertex on the horizon changes.
-    constexpr std::array<double, 4> node{0.06943184420297371, 0.33000947820757187,
-                                         0.66999052179242813, 0.93056815579702629};
-    constexpr std::array<double, 4> weight{0.17392742256872693, 0.32607257743127307,
-                                           0.32607257743127307, 0.17392742256872693};
+    constexpr std::array<double, 3> node{0.11270166537925831, 0.5, 0.88729833462074169};
+    constexpr std::array<double, 3> weight{5.0 / 18, 8.0 / 18, 5.0 / 18};
     double sum = 0;
-    for (int i = 0; i < 4; ++i) {
+    for (int i = 0; i < 3; ++i) {
         const SkyInterval sky = at(element, node[i]);
         if (!sky.dark())
             sum += weight[i] * 0.5 * (std::sin(sky.right - psi) - std::sin(sky.left - psi));

@@ -34,6 +34,9 @@ public:
     /// flux: (sin(right - psi) - sin(left - psi)) / 2, psi the element's normal; 0 where not
     /// covered.
     double cosine_flux(int element) const;
+    /// Sky that every point of the element sees: moving along a segment, towards its end, both
+    /// horizons turn to the left, so its start decides the left and its end the right one.
+    SkyInterval common(int element) const;
 
 private:
     struct Point {
@@ -43,6 +46,7 @@ private:
         double x0 = 0, x1 = 0, z0 = 0, z1 = 0;
     };
     class Walk;
+    SkyInterval between(int element, double t_left, double t_right) const;
     double horizon(int element, double t, bool rightwards) const;
 
     geometry::Sides sides_;

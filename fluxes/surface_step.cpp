@@ -3,6 +3,7 @@
 
 #include "fluxes/coupling.hpp"
 #include "fluxes/direct_ions.hpp"
+#include "fluxes/ion_tables.hpp"
 #include "fluxes/reflected_ions.hpp"
 #include "geometry/check.hpp"
 
@@ -27,6 +28,7 @@ void for_elements(std::size_t n, const Body& body) {
 
 /// Everything ions bring to the elements at their own normals.
 struct IonArrivals {
+    std::shared_ptr<const IonTables> tables;
     std::optional<DirectIons> direct;
     int tallies = 0;
     std::vector<double> reflected;          ///< [element][tally], mean over batches
@@ -58,7 +60,8 @@ struct Setting {
     }
 };
 
-IonArrivals gather_ions(const Setting& s, const std::vector<IonReflection>& reflection) {
+IonArrivals gather_ions(const Setting& s, const std::vector<IonReflection>& reflection,
+                        const SurfaceStep* previous) {
     IonArrivals ions;
     const std::size_t n = s.surface.size(), m = s.mechanism.tallies.size();
     ions.tallies = static_cast<int>(m);
@@ -68,8 +71,14 @@ IonArrivals gather_ions(const Setting& s, const std::vector<IonReflection>& refl
     if (s.sources.ions.empty())
         return ions;
     const Sampling& sampling = s.sampling;
+    if (previous && previous->ion_tables &&
+        previous->ion_tables->serves(s.domain.symmetry, s.sources.ions, s.mechanism.tallies))
+        ions.tables = previous->ion_tables;
+    else
+        ions.tables = std::make_shared<IonTables>(s.domain.symmetry, s.sources.ions,
+                                                  s.mechanism.tallies);
     ions.direct.emplace(
-        s.domain, s.surface, s.caster, s.sources.ions, s.mechanism.tallies,
+        s.domain, s.surface, s.caster, ions.tables,
         DirectIons::Options{sampling.ion_directions, sampling.seed, sampling.refresh});
     ReflectedIons bounced;
     if (sampling.ions_per_species > 0 && m > 0 && reflects(reflection)) {
@@ -184,10 +193,11 @@ SurfaceStep solve_surface(const geometry::Domain& domain, const geometry::Surfac
     for (std::size_t e = 0; e < n; ++e)
         RILLE_CHECK(reach.first[e] < reach.first[e + 1], "at least one material in reach");
     const Setting setting{domain, surface, caster, reach, mechanism, sources, sampling};
-    const IonArrivals ions = gather_ions(setting, reflection);
+    const IonArrivals ions = gather_ions(setting, reflection, previous);
     CoupledArrivals neutrals = gather_neutrals(setting, ions, previous);
 
     SurfaceStep step;
+    step.ion_tables = ions.tables;
     step.neutral = std::move(neutrals.flux);
     step.iterations = neutrals.iterations;
     step.residual = neutrals.residual;

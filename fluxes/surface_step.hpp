@@ -2,6 +2,7 @@
 #pragma once
 
 #include "fluxes/exchange.hpp"
+#include "fluxes/ion_tables.hpp"
 #include "fluxes/ions.hpp"
 #include "fluxes/mechanism.hpp"
 #include "geometry/domain.hpp"
@@ -10,9 +11,12 @@
 #include "geometry/surface.hpp"
 
 #include <cstdint>
+#include <memory>
 #include <vector>
 
 namespace rille::fluxes {
+
+class IonTables;
 
 /// What the plasma sends and how finely it is followed.
 struct Sources {
@@ -37,12 +41,14 @@ struct MaterialsInReach {
 /// Everything about one surface at one instant. Vectors over elements unless said otherwise.
 struct SurfaceStep {
     geometry::NormalRates rates;
-    std::vector<SurfaceResponse> response;    ///< of the outermost material, at the element's normal
-    std::vector<std::vector<double>> neutral; ///< [species][element] impinging flux [nm^-2 s^-1]
+    std::vector<SurfaceResponse> response; ///< of the outermost material, at the element's normal
+    std::vector<std::vector<double>> neutral;  ///< [species][element] impinging flux [nm^-2 s^-1]
     std::vector<std::vector<double>> ion_flux; ///< [species][element] direct, [nm^-2 s^-1]
     /// rate_batch[b][e]: the rate had only batch b been used; their spread is the sampling error.
     std::vector<std::vector<double>> rate_batch;
     std::vector<int> growth_material; ///< film material that grows on the element, or -1
+    /// Ion tables of the plasma state: the next step with the same ions takes them from here.
+    std::shared_ptr<const IonTables> ion_tables;
     int iterations = 0;               ///< of transport and kinetics against each other
     double residual = 0;              ///< largest change of a sticking probability in the last one
 };

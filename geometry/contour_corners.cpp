@@ -54,8 +54,10 @@ struct Padded {
             before.push_back(a);
             after.push_back(b);
         }
-        for (auto it = before.rbegin(); it != before.rend(); ++it) add(*it, -1);
-        for (int n = 0; n < size; ++n) add(points[n].p, n);
+        for (auto it = before.rbegin(); it != before.rend(); ++it)
+            add(*it, -1);
+        for (int n = 0; n < size; ++n)
+            add(points[n].p, n);
         for (std::size_t n = 0; n < after.size(); ++n)
             add(after[n], chain.closed ? static_cast<int>(n) : -1);
         measure(before.size(), size, chain, h);
@@ -69,7 +71,7 @@ struct Padded {
         return p[n - 1] + (p[n] - p[n - 1]) * std::clamp(t, 0.0, 1.0);
     }
 
-  private:
+private:
     void add(const Vec3& q, int from) {
         p.push_back(q);
         source.push_back(from);
@@ -79,7 +81,8 @@ struct Padded {
         for (std::size_t n = 1; n < p.size(); ++n)
             s[n] = s[n - 1] + (p[n] - p[n - 1]).length() / h;
         const double zero = s[head];
-        for (double& arc : s) arc -= zero;
+        for (double& arc : s)
+            arc -= zero;
         length = chain.closed ? s[head + size] : s[head + size - 1];
     }
 };
@@ -93,7 +96,8 @@ double sharp_turn(const Padded& c, double s) {
     const double left = turn(l2 - l3, l1 - l2), right = turn(r2 - r1, r3 - r2);
     const double bend = left * right <= 0 ? 0 : std::fabs(left) < std::fabs(right) ? left : right;
     const double smooth = 2.5 * bend;
-    if (smooth * raw <= 0) return raw;
+    if (smooth * raw <= 0)
+        return raw;
     return std::fabs(smooth) >= std::fabs(raw) ? 0 : raw - smooth;
 }
 
@@ -116,16 +120,21 @@ Line fit_side(const Padded& c, const RebuiltCorner& corner, int direction, doubl
         const double far = corner.near + window, s = corner.s;
         Vec3 mean(0, 0, 0);
         std::vector<Vec3> used;
-        const int start = static_cast<int>(std::lower_bound(c.s.begin(), c.s.end(), s) - c.s.begin());
+        const int start =
+            static_cast<int>(std::lower_bound(c.s.begin(), c.s.end(), s) - c.s.begin());
         for (int n = direction > 0 ? start : start - 1; n >= 0 && n < static_cast<int>(c.p.size());
              n += direction) {
-            const double arc = direction * (c.s[n] - s), distance = (c.p[n] - corner.p).length() / h;
-            if (arc > limit || arc > far + 1.5) break;
-            if (distance < skip || distance > far) continue;
+            const double arc = direction * (c.s[n] - s),
+                         distance = (c.p[n] - corner.p).length() / h;
+            if (arc > limit || arc > far + 1.5)
+                break;
+            if (distance < skip || distance > far)
+                continue;
             used.push_back(c.p[n]);
             mean += c.p[n];
         }
-        if (used.size() < 2) continue;
+        if (used.size() < 2)
+            continue;
         mean /= static_cast<double>(used.size());
         double xx = 0, xz = 0, zz = 0;
         for (const Vec3& q : used) {
@@ -137,8 +146,10 @@ Line fit_side(const Padded& c, const RebuiltCorner& corner, int direction, doubl
         const double angle = 0.5 * std::atan2(2 * xz, xx - zz);
         Line line{mean, Vec3(std::cos(angle), 0, std::sin(angle)), true};
         const Vec3 walk = (used.back() - used.front()) * direction;
-        if (walk.length() < 0.3 * h) continue;
-        if (line.along.dot(walk) < 0) line.along = -line.along;
+        if (walk.length() < 0.3 * h)
+            continue;
+        if (line.along.dot(walk) < 0)
+            line.along = -line.along;
         return line;
     }
     return {};
@@ -151,15 +162,18 @@ bool intersect(const Padded& c, double h, double room_left, double room_right, R
     for (int round = 0; round < 3; ++round) {
         out.left = fit_side(c, out, -1, h, room_left);
         out.right = fit_side(c, out, +1, h, room_right);
-        if (!out.left.good || !out.right.good) return false;
+        if (!out.left.good || !out.right.good)
+            return false;
         const Vec3 a = out.left.along, b = out.right.along;
         const double sine = a.x * b.z - a.z * b.x;
         const double turned = turn(a, b);
-        if (std::fabs(turned) < threshold || std::fabs(sine) < 0.1) return false;
+        if (std::fabs(turned) < threshold || std::fabs(sine) < 0.1)
+            return false;
         out.near = disturbed(turned);
         const Vec3 d = out.right.point - out.left.point;
         out.p = out.left.point + a * ((d.x * b.z - d.z * b.x) / sine);
-        if ((out.p - raw).length() > 2.0 * out.near * h) return false;
+        if ((out.p - raw).length() > 2.0 * out.near * h)
+            return false;
     }
     return true;
 }
@@ -172,9 +186,11 @@ std::vector<double> corner_arcs(const Padded& c) {
     std::vector<Sample> samples;
     for (std::size_t n = 1; n < c.s.size(); ++n) {
         const double middle = 0.5 * (c.s[n - 1] + c.s[n]);
-        if (middle < -spacing || middle > c.length + spacing) continue;
+        if (middle < -spacing || middle > c.length + spacing)
+            continue;
         const double size = std::fabs(sharp_turn(c, middle));
-        if (size > threshold) samples.push_back({middle, size});
+        if (size > threshold)
+            samples.push_back({middle, size});
     }
     std::vector<double> arcs;
     while (!samples.empty()) {
@@ -205,29 +221,39 @@ bool settle(Vec3& p, double s, const RebuiltCorner& corner, double h) {
     const bool left = s < corner.s;
     const Line& line = left ? corner.left : corner.right;
     const double along = (p - corner.p).dot(line.along) * (left ? -1 : 1);
-    if (along < 0.25 * h) return false;
+    if (along < 0.25 * h)
+        return false;
     p = corner.p + line.along * (left ? -along : along);
     return true;
 }
 
-} // namespace
+bool cross_each_other(const Vec3& a, const Vec3& b, const Vec3& c, const Vec3& d) {
+    const auto side = [](const Vec3& p, const Vec3& q, const Vec3& r) {
+        return (q.x - p.x) * (r.z - p.z) - (q.z - p.z) * (r.x - p.x);
+    };
+    return side(a, b, c) * side(a, b, d) < 0 && side(c, d, a) * side(c, d, b) < 0;
+}
 
-void rebuild_corners(ContourChain& chain, const Domain& domain) {
-    const double h = domain.spacing;
-    if (chain.points.size() < 4) return;
-    const Padded padded(chain, h);
-    const std::vector<double> arcs = corner_arcs(padded);
-    std::vector<RebuiltCorner> corners;
-    for (std::size_t m = 0; m < arcs.size(); ++m) {
-        RebuiltCorner corner;
-        corner.s = arcs[m];
-        const double before = m > 0 ? arcs[m] - arcs[m - 1] : reach;
-        const double after = m + 1 < arcs.size() ? arcs[m + 1] - arcs[m] : reach;
-        if (intersect(padded, h, before - 0.5, after - 0.5, corner)) corners.push_back(corner);
+/// Index of a point where the line folds back on itself or crosses itself nearby, or -1. A contour
+/// of phi never does: a fold is a corner fitted to pieces too short for it.
+int find_fold(const std::vector<ContourPoint>& points) {
+    constexpr double fold = 150 * pi / 180;
+    constexpr int nearby = 12;
+    const int size = static_cast<int>(points.size());
+    for (int n = 1; n + 1 < size; ++n) {
+        const Vec3 before = points[n].p - points[n - 1].p, after = points[n + 1].p - points[n].p;
+        if (std::fabs(turn(before, after)) > fold) return n;
+        for (int m = n + 1; m + 1 < size && m <= n + nearby; ++m)
+            if (cross_each_other(points[n - 1].p, points[n].p, points[m].p, points[m + 1].p))
+                return (n + m) / 2;
     }
-    if (corners.empty()) return;
+    return -1;
+}
 
-    const double half = 0.5 * domain.width_x();
+/// The chain's points with the corners put in and the points that they disturb settled.
+std::vector<ContourPoint> with_corners(const ContourChain& chain, const Padded& padded,
+                                       const std::vector<RebuiltCorner>& corners, double half,
+                                       double h) {
     std::vector<ContourPoint> rebuilt;
     const int size = static_cast<int>(chain.points.size());
     const int head = static_cast<int>(std::find(padded.source.begin(), padded.source.end(), 0) -
@@ -254,7 +280,37 @@ void rebuild_corners(ContourChain& chain, const Domain& domain) {
         if (keep) rebuilt.push_back(q);
     }
     place(padded.length);
-    chain.points = std::move(rebuilt);
+    return rebuilt;
+}
+
+} // namespace
+
+void rebuild_corners(ContourChain& chain, const Domain& domain) {
+    const double h = domain.spacing;
+    if (chain.points.size() < 4) return;
+    const Padded padded(chain, h);
+    const std::vector<double> arcs = corner_arcs(padded);
+    std::vector<RebuiltCorner> corners;
+    for (std::size_t m = 0; m < arcs.size(); ++m) {
+        RebuiltCorner corner;
+        corner.s = arcs[m];
+        const double before = m > 0 ? arcs[m] - arcs[m - 1] : reach;
+        const double after = m + 1 < arcs.size() ? arcs[m + 1] - arcs[m] : reach;
+        if (intersect(padded, h, before - 0.5, after - 0.5, corner)) corners.push_back(corner);
+    }
+    while (!corners.empty()) {
+        auto rebuilt = with_corners(chain, padded, corners, 0.5 * domain.width_x(), h);
+        const int fold = find_fold(rebuilt);
+        if (fold < 0) {
+            chain.points = std::move(rebuilt);
+            return;
+        }
+        const Vec3 at = rebuilt[fold].p;
+        corners.erase(std::min_element(corners.begin(), corners.end(),
+                                       [&](const RebuiltCorner& a, const RebuiltCorner& b) {
+                                           return (a.p - at).length() < (b.p - at).length();
+                                       }));
+    }
 }
 
 } // namespace rille::geometry

@@ -1,7 +1,7 @@
 // SPDX-License-Identifier: Apache-2.0
 // Private to geometry: the dual mesh of a full (three-dimensional) band. Every grid edge whose ends
-// differ in sign gives one quad through the four dual cells round it; a dual cell has one vertex for
-// every separate sheet (loop of crossed edges) that passes through it, so the mesh is manifold.
+// differ in sign gives one quad through the four dual cells round it; a dual cell has one vertex
+// for every separate sheet (loop of crossed edges) that passes through it, so the mesh is manifold.
 #pragma once
 
 #include "geometry/band.hpp"
@@ -15,9 +15,9 @@ namespace rille::geometry {
 /// A dual cell: the cube between eight nodes. At a mirror side a half cell ends on the side plane;
 /// its outer nodes are its inner ones, and `low` says that it lies below its node along x or y.
 struct DualCell {
-    int node = 0;                  ///< lower corner, as band index
-    std::array<bool, 2> low{};     ///< half cell between the lower side and its node
-    std::array<int, 8> corner{};   ///< band indices; bit 0, 1, 2 of the position: upper in x, y, z
+    int node = 0;                ///< lower corner, as band index
+    std::array<bool, 2> low{};   ///< half cell between the lower side and its node
+    std::array<int, 8> corner{}; ///< band indices; bit 0, 1, 2 of the position: upper in x, y, z
     std::array<std::int8_t, 12> loop{}; ///< sheet of each edge, -1 if not crossed (see edge_number)
     int sheets = 0;
     int first_vertex = 0;
@@ -62,7 +62,8 @@ struct CrossedCell {
 
     Vec3 mean() const {
         Vec3 sum(0, 0, 0);
-        for (int n = 0; n < count; ++n) sum += edge[n].crossing;
+        for (int n = 0; n < count; ++n)
+            sum += edge[n].crossing;
         return sum / count;
     }
 };

@@ -13,7 +13,7 @@ constexpr std::size_t grain = 16384;
 
 /// Variants of the dual cell above a node: bit 0 the half cell below it in x, bit 1 in y.
 class Topology {
-  public:
+public:
     explicit Topology(const Band& band)
         : band_(band), mirror_(band.domain.sides == Sides::mirror), cell_mask_(band.size(), 0),
           edge_mask_(band.size(), 0), cell_start_(band.size() + 1, 0) {}
@@ -22,24 +22,29 @@ class Topology {
         mark();
         list_cells();
         over_ranges(mesh_.cells.size(), grain, [&](std::size_t first, std::size_t last) {
-            for (std::size_t n = first; n < last; ++n) find_sheets(mesh_.cells[n]);
+            for (std::size_t n = first; n < last; ++n)
+                find_sheets(mesh_.cells[n]);
         });
         number_vertices();
         over_ranges(mesh_.quads.size(), grain, [&](std::size_t first, std::size_t last) {
-            for (std::size_t n = first; n < last; ++n) join(mesh_.quads[n]);
+            for (std::size_t n = first; n < last; ++n)
+                join(mesh_.quads[n]);
         });
         return std::move(mesh_);
     }
 
-  private:
+private:
     bool gas(int node) const { return band_.phi[node] >= 0; }
 
     /// Whether grid edges along `axis` leave this node (not across a mirror side).
     bool has_edge(int node, int axis) const {
         const auto& c = band_.cells[node];
-        if (band_.neighbour[node][2 * axis + 1] < 0) return false;
-        if (axis == 0) return !mirror_ || c.i + 1 < band_.domain.cells_x;
-        if (axis == 1) return !mirror_ || c.j + 1 < band_.domain.cells_y;
+        if (band_.neighbour[node][2 * axis + 1] < 0)
+            return false;
+        if (axis == 0)
+            return !mirror_ || c.i + 1 < band_.domain.cells_x;
+        if (axis == 1)
+            return !mirror_ || c.j + 1 < band_.domain.cells_y;
         return true;
     }
 
@@ -58,7 +63,8 @@ class Topology {
 
     void mark() {
         over_ranges(band_.size(), grain, [&](std::size_t first, std::size_t last) {
-            for (std::size_t n = first; n < last; ++n) mark(static_cast<int>(n));
+            for (std::size_t n = first; n < last; ++n)
+                mark(static_cast<int>(n));
         });
     }
 
@@ -68,15 +74,20 @@ class Topology {
                 edge_mask_[node] |= 1 << axis;
         const auto& c = band_.cells[node];
         for (int variant = 0; variant < 4; ++variant) {
-            if ((variant & 1) && !(mirror_ && c.i == 0)) continue;
-            if ((variant & 2) && !(mirror_ && c.j == 0)) continue;
+            if ((variant & 1) && !(mirror_ && c.i == 0))
+                continue;
+            if ((variant & 2) && !(mirror_ && c.j == 0))
+                continue;
             const auto corner = corners(node, variant);
             bool full = true, crossed = false;
             for (int m : corner) {
-                if (m < 0) full = false;
-                else crossed = crossed || gas(m) != gas(node);
+                if (m < 0)
+                    full = false;
+                else
+                    crossed = crossed || gas(m) != gas(node);
             }
-            if (full && crossed) cell_mask_[node] |= 1 << variant;
+            if (full && crossed)
+                cell_mask_[node] |= 1 << variant;
         }
     }
 
@@ -116,7 +127,8 @@ class Topology {
         std::iota(parent.begin(), parent.end(), 0);
         std::array<bool, 12> crossed{};
         const auto root = [&](int e) {
-            while (parent[e] != e) e = parent[e];
+            while (parent[e] != e)
+                e = parent[e];
             return e;
         };
         const auto unite = [&](int a, int b) {
@@ -134,11 +146,15 @@ class Topology {
                 for (int m = 0; m < 4; ++m)
                     if (gas(cell.corner[ring[m]]) != gas(cell.corner[ring[(m + 1) % 4]]))
                         hit[hits++] = m;
-                for (int m = 0; m < hits; ++m) crossed[edge[hit[m]]] = true;
-                if (hits == 2) unite(edge[hit[0]], edge[hit[1]]);
-                if (hits < 4) continue;
+                for (int m = 0; m < hits; ++m)
+                    crossed[edge[hit[m]]] = true;
+                if (hits == 2)
+                    unite(edge[hit[0]], edge[hit[1]]);
+                if (hits < 4)
+                    continue;
                 double sum = 0;
-                for (int m : ring) sum += band_.phi[cell.corner[m]];
+                for (int m : ring)
+                    sum += band_.phi[cell.corner[m]];
                 // Edges m and m + 1 meet at ring corner m + 1: joined round it if it is cut off.
                 const bool cut_odd = gas(cell.corner[ring[1]]) != (sum >= 0);
                 unite(edge[cut_odd ? 0 : 1], edge[cut_odd ? 1 : 2]);
@@ -149,9 +165,11 @@ class Topology {
         cell.sheets = 0;
         for (int e = 0; e < 12; ++e) {
             cell.loop[e] = -1;
-            if (!crossed[e]) continue;
+            if (!crossed[e])
+                continue;
             int& sheet = number[root(e)];
-            if (sheet < 0) sheet = cell.sheets++;
+            if (sheet < 0)
+                sheet = cell.sheets++;
             cell.loop[e] = static_cast<std::int8_t>(sheet);
         }
     }
@@ -176,17 +194,22 @@ class Topology {
             int node = quad.node, variant = 0;
             std::uint8_t image = 0;
             for (int axis = 0; axis < 3; ++axis) {
-                if (!(back[m] >> axis & 1)) continue;
-                const int at = axis == 0 ? band_.cells[quad.node].i
-                                         : axis == 1 ? band_.cells[quad.node].j : 1;
-                if (at == 0 && mirror_) variant |= 1 << axis;
-                else node = band_.neighbour[node][2 * axis];
-                if (at == 0 && !mirror_) image |= 1 << axis;
+                if (!(back[m] >> axis & 1))
+                    continue;
+                const int at = axis == 0   ? band_.cells[quad.node].i
+                               : axis == 1 ? band_.cells[quad.node].j
+                                           : 1;
+                if (at == 0 && mirror_)
+                    variant |= 1 << axis;
+                else
+                    node = band_.neighbour[node][2 * axis];
+                if (at == 0 && !mirror_)
+                    image |= 1 << axis;
                 RILLE_CHECK(node >= 0, "the band is too narrow at the front");
             }
             RILLE_CHECK(cell_mask_[node] >> variant & 1, "the band is too narrow at the front");
-            const int number = cell_start_[node] +
-                               __builtin_popcount(cell_mask_[node] & ((1 << variant) - 1));
+            const int number =
+                cell_start_[node] + __builtin_popcount(cell_mask_[node] & ((1 << variant) - 1));
             const DualCell& cell = mesh_.cells[number];
             const int slot = quad.up ? m : 3 - m;
             quad.vertex[slot] = cell.first_vertex + cell.loop[edge_number(quad.axis, back[m])];
@@ -203,6 +226,8 @@ class Topology {
 
 } // namespace
 
-DualMesh dual_topology(const Band& band) { return Topology(band).run(); }
+DualMesh dual_topology(const Band& band) {
+    return Topology(band).run();
+}
 
 } // namespace rille::geometry

@@ -7,8 +7,8 @@
 
 namespace rille::geometry {
 
-/// extract_surface of front.hpp on the band's phi and neighbours. Every cell whose sign differs from
-/// a neighbour's must have its full ring of neighbours (diagonals included) in the band.
+/// extract_surface of front.hpp on the band's phi and neighbours. Every cell whose sign differs
+/// from a neighbour's must have its full ring of neighbours (diagonals included) in the band.
 Surface extract_surface(const Band&);
 
 Surface extract_extruded(const Band&);

@@ -21,7 +21,9 @@ struct Piece {
 /// A loop of a periodic domain, cut wherever it crosses a side and moved into the period.
 std::vector<Piece> cut_at_sides(const ContourChain& chain, const Domain& domain) {
     const double width = domain.width_x(), x_min = domain.x_min(), x_max = x_min + width;
-    const auto period_of = [&](double x) { return static_cast<int>(std::floor((x - x_min) / width)); };
+    const auto period_of = [&](double x) {
+        return static_cast<int>(std::floor((x - x_min) / width));
+    };
     const auto inside = [&](Vec3 p, int period) {
         p.x = std::clamp(p.x - period * width, x_min, x_max);
         return p;
@@ -41,12 +43,14 @@ std::vector<Piece> cut_at_sides(const ContourChain& chain, const Domain& domain)
             const double side = x_min + width * (right ? here + 1 : here);
             const double z = a.z + (side - a.x) / (b.x - a.x) * (b.z - a.z);
             const Vec3 end(right ? x_max : x_min, 0, z);
-            if ((end - from).length() > 0) pieces.push_back({from, end, here, false});
+            if ((end - from).length() > 0)
+                pieces.push_back({from, end, here, false});
             from = Vec3(right ? x_min : x_max, 0, z);
             here += right ? 1 : -1;
         }
         const Vec3 end = inside(ahead, period_of(ahead.x));
-        if ((end - from).length() > 0) pieces.push_back({from, end, here, false});
+        if ((end - from).length() > 0)
+            pieces.push_back({from, end, here, false});
     }
     for (std::size_t n = 0; n < pieces.size(); ++n)
         pieces[n].enters = n > 0 ? pieces[n].period == pieces[n - 1].period + 1
@@ -58,15 +62,18 @@ std::vector<Piece> cut_at_sides(const ContourChain& chain, const Domain& domain)
 void start_at_side(std::vector<Piece>& pieces) {
     int start = -1;
     for (int n = 0; n < static_cast<int>(pieces.size()); ++n)
-        if (pieces[n].enters && (start < 0 || pieces[n].a.z > pieces[start].a.z)) start = n;
-    if (start > 0) std::rotate(pieces.begin(), pieces.begin() + start, pieces.end());
+        if (pieces[n].enters && (start < 0 || pieces[n].a.z > pieces[start].a.z))
+            start = n;
+    if (start > 0)
+        std::rotate(pieces.begin(), pieces.begin() + start, pieces.end());
 }
 
 void add_open(Surface& s, const ContourChain& chain, int number) {
     const int size = static_cast<int>(chain.points.size()) - 1;
     for (int n = 0; n <= size; ++n) {
         s.vertices.push_back(chain.points[n].p);
-        if (n == 0) continue;
+        if (n == 0)
+            continue;
         const int end = static_cast<int>(s.vertices.size()) - 1;
         const int e = static_cast<int>(s.size());
         add_element(s, {end - 1, end, -1, -1}, number);
@@ -101,11 +108,13 @@ int open_chain(const std::vector<ContourChain>& chains, const Domain& domain) {
     for (int n = 0; n < static_cast<int>(chains.size()); ++n) {
         const auto& c = chains[n];
         const double run = c.closed ? c.shift : c.points.back().p.x - c.points.front().p.x;
-        if (run < 0.5 * domain.width_x()) continue;
+        if (run < 0.5 * domain.width_x())
+            continue;
         double z = c.points.front().p.z;
         if (c.closed)
             for (const Piece& piece : cut_at_sides(c, domain))
-                if (piece.enters) z = std::max(z, piece.a.z);
+                if (piece.enters)
+                    z = std::max(z, piece.a.z);
         if (best < 0 || z > best_z) {
             best = n;
             best_z = z;
@@ -124,7 +133,8 @@ Surface extract_extruded(const Band& band) {
         merge_slivers(chain, shortest_segment * domain.spacing);
     }
     const int open = open_chain(chains, domain);
-    if (open > 0) std::rotate(chains.begin(), chains.begin() + open, chains.begin() + open + 1);
+    if (open > 0)
+        std::rotate(chains.begin(), chains.begin() + open, chains.begin() + open + 1);
     Surface s;
     int number = open < 0 ? 1 : 0;
     for (const ContourChain& chain : chains) {

@@ -4,6 +4,8 @@
 
 namespace rille::geometry {
 
-Surface extract_surface(const Front& front) { return extract_surface(front.band()); }
+Surface extract_surface(const Front& front) {
+    return extract_surface(front.band());
+}
 
 } // namespace rille::geometry

@@ -18,7 +18,8 @@ std::vector<int> parts_of_vertices(const DualMesh& mesh) {
     std::vector<int> parent(mesh.position.size());
     std::iota(parent.begin(), parent.end(), 0);
     const auto root = [&](int v) {
-        while (parent[v] != v) v = parent[v] = parent[parent[v]];
+        while (parent[v] != v)
+            v = parent[v] = parent[parent[v]];
         return v;
     };
     for (const DualQuad& q : mesh.quads)
@@ -30,7 +31,8 @@ std::vector<int> parts_of_vertices(const DualMesh& mesh) {
     int count = 0;
     for (int v = 0; v < static_cast<int>(parent.size()); ++v) {
         const int r = root(v);
-        if (number[r] < 0) number[r] = count++;
+        if (number[r] < 0)
+            number[r] = count++;
         number[v] = number[r];
     }
     return number;
@@ -40,17 +42,21 @@ std::vector<int> parts_of_vertices(const DualMesh& mesh) {
 void add_vertices(const Band& band, const DualMesh& mesh, Surface& s) {
     std::vector<std::uint8_t> used(mesh.position.size(), 0);
     for (const DualQuad& q : mesh.quads)
-        for (int m = 0; m < 4; ++m) used[q.vertex[m]] |= 1 << q.image[m];
+        for (int m = 0; m < 4; ++m)
+            used[q.vertex[m]] |= 1 << q.image[m];
     std::vector<int> start(mesh.position.size());
     const double x_min = band.domain.x_min(), y_min = band.domain.y_min();
     const double x_max = -x_min, y_max = -y_min;
     for (std::size_t v = 0; v < used.size(); ++v) {
         start[v] = static_cast<int>(s.vertices.size());
         for (int image = 0; image < 4; ++image) {
-            if (!(used[v] >> image & 1)) continue;
+            if (!(used[v] >> image & 1))
+                continue;
             Vec3 p = mesh.position[v];
-            if (image & 1) p.x = p.x == x_max ? x_min : p.x - band.domain.width_x();
-            if (image & 2) p.y = p.y == y_max ? y_min : p.y - band.domain.width_y();
+            if (image & 1)
+                p.x = p.x == x_max ? x_min : p.x - band.domain.width_x();
+            if (image & 2)
+                p.y = p.y == y_max ? y_min : p.y - band.domain.width_y();
             s.vertices.push_back(p);
         }
     }
@@ -103,7 +109,8 @@ void number_chains(const DualMesh& mesh, const std::vector<int>& origin, const D
     }
     int open = -1;
     for (int p = 0; p < parts; ++p)
-        if (cover[p] > 0.5 * domain.width_x() * domain.width_y() && (open < 0 || top[p] > top[open]))
+        if (cover[p] > 0.5 * domain.width_x() * domain.width_y() &&
+            (open < 0 || top[p] > top[open]))
             open = p;
     for (int& c : s.chain)
         c = c == open ? 0 : open < 0 || c < open ? c + 1 : c;
@@ -118,8 +125,10 @@ Surface extract_full(const Band& band) {
     Surface s;
     add_vertices(band, mesh, s);
     std::vector<int> origin(mesh.quads.size());
-    if (band.domain.sides == Sides::periodic) origin = clip_to_period(band.domain, s);
-    else std::iota(origin.begin(), origin.end(), 0);
+    if (band.domain.sides == Sides::periodic)
+        origin = clip_to_period(band.domain, s);
+    else
+        std::iota(origin.begin(), origin.end(), 0);
     measure(mesh, origin, band.domain.spacing, s);
     number_chains(mesh, origin, band.domain, s);
     return s;

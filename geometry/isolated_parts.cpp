@@ -10,9 +10,9 @@ namespace {
 
 /// Integrals over one chain; signs as for a solid, whose normals point outwards.
 struct Moments {
-    double cover = 0;       ///< of n_z dA
-    double volume = 0;      ///< of z n_z dA
-    Vec3 moment{0, 0, 0};   ///< of (x z, y z, z^2 / 2) n_z dA
+    double cover = 0;     ///< of n_z dA
+    double volume = 0;    ///< of z n_z dA
+    Vec3 moment{0, 0, 0}; ///< of (x z, y z, z^2 / 2) n_z dA
     Vec3 reference{0, 0, 0};
     double top = -1e300;
     bool started = false;
@@ -21,7 +21,7 @@ struct Moments {
 /// Adds a flat piece: its corners weigh alike in integrals of linear functions; products take the
 /// exact quadratic rule for a segment (Simpson) and a triangle (middles of the sides).
 class Adder {
-  public:
+public:
     explicit Adder(const Domain& domain) : domain_(domain) {}
 
     void add(Moments& m, const Vec3& a, const Vec3& b) const {
@@ -37,9 +37,10 @@ class Adder {
         collect(m, points, weights, nz);
     }
 
-  private:
+private:
     void collect(Moments& m, const Vec3 (&points)[3], const double (&weights)[3], double nz) const {
-        if (!m.started) m.reference = points[0];
+        if (!m.started)
+            m.reference = points[0];
         m.started = true;
         m.cover += nz;
         // One offset for the whole piece: it may lie across a periodic side from the reference.
@@ -48,14 +49,17 @@ class Adder {
             const Vec3 d = points[n] - m.reference + offset;
             const double w = weights[n] * nz;
             m.volume += w * points[n].z;
-            m.moment += Vec3(d.x * points[n].z, d.y * points[n].z, 0.5 * points[n].z * points[n].z) * w;
+            m.moment +=
+                Vec3(d.x * points[n].z, d.y * points[n].z, 0.5 * points[n].z * points[n].z) * w;
             m.top = std::max(m.top, points[n].z);
         }
     }
     Vec3 nearest_image(Vec3 d) const {
-        if (domain_.sides == Sides::mirror) return d;
+        if (domain_.sides == Sides::mirror)
+            return d;
         d.x -= domain_.width_x() * std::round(d.x / domain_.width_x());
-        if (!domain_.extruded()) d.y -= domain_.width_y() * std::round(d.y / domain_.width_y());
+        if (!domain_.extruded())
+            d.y -= domain_.width_y() * std::round(d.y / domain_.width_y());
         return d;
     }
 
@@ -78,7 +82,8 @@ IsolatedPart part_of(const Moments& m, int chain) {
 
 std::vector<IsolatedPart> find_isolated_parts(const Domain& domain, const Surface& s) {
     int chains = 0;
-    for (int c : s.chain) chains = std::max(chains, c + 1);
+    for (int c : s.chain)
+        chains = std::max(chains, c + 1);
     std::vector<Moments> moments(chains);
     const Adder adder(domain);
     for (std::size_t e = 0; e < s.size(); ++e) {
@@ -90,19 +95,22 @@ std::vector<IsolatedPart> find_isolated_parts(const Domain& domain, const Surfac
             continue;
         }
         adder.add(m, vertex(0), vertex(1), vertex(2));
-        if (c[3] != c[2]) adder.add(m, vertex(0), vertex(2), vertex(3));
+        if (c[3] != c[2])
+            adder.add(m, vertex(0), vertex(2), vertex(3));
     }
 
     const double base = domain.width_x() * (domain.extruded() ? 1 : domain.width_y());
     std::vector<int> sheets; // that span the period, from the top
     for (int c = 0; c < chains; ++c)
-        if (std::fabs(moments[c].cover) > 0.5 * base) sheets.push_back(c);
+        if (std::fabs(moments[c].cover) > 0.5 * base)
+            sheets.push_back(c);
     std::stable_sort(sheets.begin(), sheets.end(),
                      [&](int a, int b) { return moments[a].top > moments[b].top; });
 
     std::vector<IsolatedPart> parts;
     for (int c = 1; c < chains; ++c) {
-        if (!moments[c].started) continue;
+        if (!moments[c].started)
+            continue;
         const auto at = std::find(sheets.begin(), sheets.end(), c);
         if (at == sheets.end()) {
             parts.push_back(part_of(moments[c], c));

@@ -15,7 +15,7 @@ double ellipse_distance(double x, double y, double a, double b);
 
 /// All openings with their images beyond the sides.
 class OpeningOutlines {
-  public:
+public:
     OpeningOutlines(const Domain&, const std::vector<Opening>&);
 
     /// Distance [nm] in the plane to the nearest outline, < 0 inside an opening; 1e30 without
@@ -23,7 +23,7 @@ class OpeningOutlines {
     /// depth inside the common part counts to the farther of their outlines.
     double distance(double x, double y) const;
 
-  private:
+private:
     struct Via {
         double x, y, a, b; ///< centre and semi-axes
         double largest;    ///< larger semi-axis

@@ -12,7 +12,7 @@ namespace {
 using Polygon = std::vector<int>;
 
 class Clipper {
-  public:
+public:
     Clipper(const Domain& domain, std::vector<Vec3>& vertices)
         : limit_{0.5 * domain.width_x(), 0.5 * domain.width_y()}, vertices_(vertices) {}
 
@@ -26,13 +26,14 @@ class Clipper {
         for (int axis = 0; axis < 2; ++axis)
             for (int side = -1; side <= 1; side += 2) {
                 std::vector<Polygon> next;
-                for (const Polygon& p : parts) split(p, axis, side, next);
+                for (const Polygon& p : parts)
+                    split(p, axis, side, next);
                 parts = std::move(next);
             }
         return parts;
     }
 
-  private:
+private:
     double beyond(int v, int axis, int side) const {
         return side * vertices_[v][axis] - limit_[axis];
     }
@@ -43,27 +44,35 @@ class Clipper {
             any_out = any_out || beyond(v, axis, side) > 0;
             any_in = any_in || beyond(v, axis, side) < 0;
         }
-        if (!any_out) return out.push_back(p);
+        if (!any_out)
+            return out.push_back(p);
         Polygon kept, moved;
         for (std::size_t n = 0; n < p.size(); ++n) {
             const int a = p[n], b = p[(n + 1) % p.size()];
             const double da = beyond(a, axis, side), db = beyond(b, axis, side);
-            if (da <= 0) kept.push_back(a);
-            if (da >= 0) moved.push_back(a);
+            if (da <= 0)
+                kept.push_back(a);
+            if (da >= 0)
+                moved.push_back(a);
             if (da * db < 0) {
                 const int c = cut(a, b, axis, side);
                 kept.push_back(c);
                 moved.push_back(c);
             }
         }
-        if (any_in && kept.size() > 2) out.push_back(kept);
-        for (int& v : moved) v = shift(v, axis, side);
-        if (moved.size() > 2) out.push_back(moved);
+        if (any_in && kept.size() > 2)
+            out.push_back(kept);
+        for (int& v : moved)
+            v = shift(v, axis, side);
+        if (moved.size() > 2)
+            out.push_back(moved);
     }
 
     int cut(int a, int b, int axis, int side) {
-        if (a > b) std::swap(a, b); // the same point from both elements at the edge
-        int& known = cuts_.emplace(std::array<int, 3>{a, b, 2 * axis + (side > 0)}, -1).first->second;
+        if (a > b)
+            std::swap(a, b); // the same point from both elements at the edge
+        int& known =
+            cuts_.emplace(std::array<int, 3>{a, b, 2 * axis + (side > 0)}, -1).first->second;
         if (known < 0) {
             const Vec3 pa = vertices_[a], pb = vertices_[b];
             Vec3 p = pa + (pb - pa) * ((side * limit_[axis] - pa[axis]) / (pb[axis] - pa[axis]));
@@ -74,7 +83,8 @@ class Clipper {
     }
 
     int shift(int v, int axis, int side) {
-        int& known = shifts_.emplace(std::array<int, 2>{v, 2 * axis + (side > 0)}, -1).first->second;
+        int& known =
+            shifts_.emplace(std::array<int, 2>{v, 2 * axis + (side > 0)}, -1).first->second;
         if (known < 0) {
             Vec3 p = vertices_[v];
             p[axis] = beyond(v, axis, side) > 0 ? p[axis] - 2 * side * limit_[axis]
@@ -99,7 +109,8 @@ class Clipper {
 void compact(Surface& s) {
     std::vector<int> number(s.vertices.size(), -1);
     for (const auto& c : s.corners)
-        for (int v : c) number[v] = 0;
+        for (int v : c)
+            number[v] = 0;
     int count = 0;
     for (std::size_t v = 0; v < number.size(); ++v)
         if (number[v] == 0) {
@@ -108,7 +119,8 @@ void compact(Surface& s) {
         }
     s.vertices.resize(count);
     for (auto& c : s.corners)
-        for (int& v : c) v = number[v];
+        for (int& v : c)
+            v = number[v];
 }
 
 } // namespace
@@ -137,7 +149,8 @@ std::vector<int> clip_to_period(const Domain& domain, Surface& s) {
                 }
     }
     s.corners = std::move(corners);
-    if (clipped) compact(s);
+    if (clipped)
+        compact(s);
     return origin;
 }
 

@@ -11,8 +11,8 @@
 
 namespace rille::geometry {
 
-/// Cuts the elements (`corners` and `vertices` only) at the sides of a periodic domain. Elements may
-/// reach out by less than a period. Returns for every resulting element the one it came from.
+/// Cuts the elements (`corners` and `vertices` only) at the sides of a periodic domain. Elements
+/// may reach out by less than a period. Returns for every resulting element the one it came from.
 std::vector<int> clip_to_period(const Domain&, Surface&);
 
 } // namespace rille::geometry

@@ -18,18 +18,31 @@ namespace {
 constexpr double infinite = std::numeric_limits<double>::infinity();
 // A ray that runs between pillars may cross many periods; this many means it found a gap.
 constexpr int most_folds = 20000;
+// [cells] Beyond a side lie images of the elements next to it. A ray is followed this far into
+// them, so that a hit on the side itself is not lost between two images.
+constexpr double beyond = 0.5;
+
+/// What the filter needs to know of the ray's start, in the frame of the present image.
+struct StartContext {
+    RTCIntersectContext context; // must come first: Embree hands its address back
+    const Vec3* centre;          ///< of each quad
+    int own_quad;                ///< of the element the ray leaves; -1 after a fold and for none
+    Vec3 from_centre, from_normal;
+    float near; ///< hits before this ray parameter are at the start of the ray
+};
 
 } // namespace
 
 struct QuadCaster::Scene {
     RTCDevice device = nullptr;
     RTCScene scene = nullptr;
-    std::vector<Vec3> vertices;
-    std::vector<std::array<int, 4>> quads; ///< the elements first, then images beyond the sides
+    std::vector<Vec3> vertices;            ///< until the tree is built
+    std::vector<std::array<int, 4>> quads; ///< likewise; the elements first, then their images
     std::vector<int> source;               ///< element of each quad
-    std::vector<Vec3> centre;              ///< of each quad
-    std::vector<Vec3> normal;              ///< of each element
-    Vec3 middle;                           ///< subtracted from what Embree sees
+    std::vector<std::array<signed char, 2>> image; ///< periods by which each quad is moved
+    std::vector<Vec3> centre;                      ///< of each quad
+    std::vector<Vec3> normal;                      ///< of each element
+    Vec3 middle;                                   ///< subtracted from what Embree sees
 
     ~Scene() {
         if (scene)
@@ -40,21 +53,11 @@ struct QuadCaster::Scene {
     void add_images(const Domain&, const Surface&, double skirt);
     void add_image(const Domain&, const Surface&, int sx, int sy, double skirt);
     void build();
-    double exact_distance(const Vec3& origin, const Vec3& direction, int quad, bool second) const;
+    int first_hit(StartContext&, const Vec3& origin, const Vec3& direction, double reach,
+                  double slack, double& t) const;
 };
 
 namespace {
-
-/// What the filter needs to know of the ray's start, in the frame of the present image.
-struct StartContext {
-    RTCIntersectContext context; // must come first: Embree hands its address back
-    const int* source;
-    const Vec3* centre;
-    int from;     ///< element the ray leaves, -1 for none
-    int own_quad; ///< its quad in this image; -1 after a fold
-    Vec3 from_centre, from_normal;
-    float near; ///< hits before this ray parameter are at the start of the ray
-};
 
 /// Rejects the back of elements and what a ray cannot meet where it starts.
 void filter_start(const RTCFilterFunctionNArguments* args) {
@@ -64,9 +67,9 @@ void filter_start(const RTCFilterFunctionNArguments* args) {
     const float along = hit->Ng_x * ray->dir_x + hit->Ng_y * ray->dir_y + hit->Ng_z * ray->dir_z;
     const int quad = static_cast<int>(hit->primID);
     bool reject = along >= 0 || quad == start->own_quad;
-    if (!reject && start->from >= 0 && ray->tfar < start->near)
-        reject = start->source[quad] == start->from ||
-                 (start->centre[quad] - start->from_centre).dot(start->from_normal) <= 0;
+    // What lies behind the plane of the element cannot be in front of a ray that has just left it.
+    if (!reject && ray->tfar < start->near)
+        reject = (start->centre[quad] - start->from_centre).dot(start->from_normal) < 1e-9;
     if (reject)
         args->valid[0] = 0;
 }
@@ -108,6 +111,7 @@ void QuadCaster::Scene::add_image(const Domain& domain, const Surface& surface, 
                                       : std::array<int, 4>{quad[0], quad[3], quad[2], quad[1]};
         quads.push_back(quad);
         source.push_back(static_cast<int>(e));
+        image.push_back({static_cast<signed char>(sx), static_cast<signed char>(sy)});
         centre.push_back(moved(surface.centre[e]));
     }
 }
@@ -119,6 +123,7 @@ void QuadCaster::Scene::add_images(const Domain& domain, const Surface& surface,
     normal = surface.normal;
     for (std::size_t e = 0; e < surface.size(); ++e)
         source.push_back(static_cast<int>(e));
+    image.assign(surface.size(), {0, 0});
     for (int sy = -1; sy <= 1; ++sy)
         for (int sx = -1; sx <= 1; ++sx)
             if (sx != 0 || sy != 0)
@@ -151,16 +156,31 @@ void QuadCaster::Scene::build() {
     // the same.
     tbb::task_arena(1).execute([&] { rtcCommitScene(scene); });
     RILLE_CHECK(rtcGetDeviceError(device) == RTC_ERROR_NONE, "Embree cannot build its tree");
+    std::vector<Vec3>().swap(vertices);
+    std::vector<std::array<int, 4>>().swap(quads);
 }
 
-/// Distance to the plane of one half of a quad (Embree cuts it into 0 1 3 and 2 3 1).
-double QuadCaster::Scene::exact_distance(const Vec3& origin, const Vec3& direction, int quad,
-                                         bool second) const {
-    const auto& q = quads[quad];
-    const Vec3 a = vertices[q[second ? 2 : 0]], b = vertices[q[second ? 3 : 1]];
-    const Vec3 c = vertices[q[second ? 1 : 3]];
-    const Vec3 across = (b - a).cross(c - a);
-    return across.dot(a - origin) / across.dot(direction);
+/// Quad first met within `reach`, -1 for none, and the distance t. The search begins 2 `slack`
+/// behind the origin and `slack` above the element, so that a concave neighbour is met wherever
+/// single precision puts it.
+int QuadCaster::Scene::first_hit(StartContext& start, const Vec3& origin, const Vec3& direction,
+                                 double reach, double slack, double& t) const {
+    Vec3 o = origin - middle - 2 * slack * direction;
+    if (start.own_quad >= 0)
+        o += slack * start.from_normal;
+    RTCRayHit rh{};
+    rh.ray.org_x = static_cast<float>(o.x);
+    rh.ray.org_y = static_cast<float>(o.y);
+    rh.ray.org_z = static_cast<float>(o.z);
+    rh.ray.dir_x = static_cast<float>(direction.x);
+    rh.ray.dir_y = static_cast<float>(direction.y);
+    rh.ray.dir_z = static_cast<float>(direction.z);
+    rh.ray.tfar = static_cast<float>(reach + 2 * slack);
+    rh.ray.mask = ~0u;
+    rh.hit.geomID = RTC_INVALID_GEOMETRY_ID;
+    rtcIntersect1(scene, &start.context, &rh);
+    t = rh.ray.tfar - 2 * slack;
+    return rh.hit.geomID == RTC_INVALID_GEOMETRY_ID ? -1 : static_cast<int>(rh.hit.primID);
 }
 
 struct QuadCaster::Ray {
@@ -193,9 +213,9 @@ QuadCaster::~QuadCaster() = default;
 void QuadCaster::fold(Ray& ray) const {
     for (int axis = 0; axis < 2; ++axis) {
         const double width = axis == 0 ? domain_.width_x() : domain_.width_y();
+        if (std::fabs(ray.origin[axis]) <= 0.5 * width)
+            continue; // a ray on a side stays in the period of the element it leaves
         const double image = std::floor(ray.origin[axis] / width + 0.5);
-        if (image == 0)
-            continue;
         const bool turn = domain_.sides == Sides::mirror && std::fmod(image, 2.0) != 0;
         for (Vec3* p : {&ray.origin, &ray.from_centre}) {
             (*p)[axis] -= image * width;
@@ -255,13 +275,33 @@ void QuadCaster::cross_side(Ray& ray, int axis) const {
     ray.from_normal[axis] = -ray.from_normal[axis];
 }
 
-Hit QuadCaster::finish(Ray& ray, Hit::Kind kind, int element, double t) const {
+/// Brings a ray that ended on an image of an element to the element itself.
+void QuadCaster::leave_image(Ray& ray, int quad) const {
+    for (int axis = 0; axis < 2; ++axis) {
+        const double width = axis == 0 ? domain_.width_x() : domain_.width_y();
+        double& p = ray.origin[axis];
+        if (const int image = scene_->image[quad][axis]; image != 0) {
+            p -= image * width;
+            if (domain_.sides == Sides::mirror) {
+                p = -p;
+                ray.direction[axis] = -ray.direction[axis];
+            }
+        }
+        p = std::clamp(p, -0.5 * width, 0.5 * width);
+    }
+}
+
+Hit QuadCaster::finish(Ray& ray, Hit::Kind kind, int quad, double t) const {
     Hit hit;
     hit.kind = kind;
-    hit.element = element;
     hit.distance = std::max(0.0, ray.length + t);
     ray.origin += t * ray.direction;
-    fold(ray);
+    if (quad >= 0) {
+        leave_image(ray, quad);
+        hit.element = scene_->source[quad];
+    } else {
+        fold(ray);
+    }
     hit.point = ray.origin;
     hit.direction = ray.direction;
     return hit;
@@ -283,43 +323,21 @@ Hit QuadCaster::trace(const Vec3& origin, const Vec3& direction, int from_elemen
     StartContext start;
     rtcInitIntersectContext(&start.context);
     start.context.filter = filter_start;
-    start.source = scene.source.data();
     start.centre = scene.centre.data();
-    start.from = from_element;
     start.own_quad = from_element;
-    // Beyond a side lie images of the elements next to it. A ray is followed a little into them, so
-    // that a hit on the side itself is not lost between two images.
-    const double beyond = 0.5 * domain_.spacing;
     for (int folds = 0; folds < most_folds; ++folds) {
         int axis = 0;
         const double side = way_to_side(ray, axis);
         const double top =
             ray.direction.z > 0 ? (z_top_ - ray.origin.z) / ray.direction.z : infinite;
-        const double way = std::min(side, top);
         start.from_centre = ray.from_centre;
         start.from_normal = ray.from_normal;
-        start.near = static_cast<float>(5 * slack_ - ray.length);
-        const Vec3 o = ray.origin - scene.middle - slack_ * ray.direction;
-        RTCRayHit rh{};
-        rh.ray.org_x = static_cast<float>(o.x);
-        rh.ray.org_y = static_cast<float>(o.y);
-        rh.ray.org_z = static_cast<float>(o.z);
-        rh.ray.dir_x = static_cast<float>(ray.direction.x);
-        rh.ray.dir_y = static_cast<float>(ray.direction.y);
-        rh.ray.dir_z = static_cast<float>(ray.direction.z);
-        rh.ray.tfar = static_cast<float>(way + beyond + slack_);
-        rh.ray.mask = ~0u;
-        rh.hit.geomID = RTC_INVALID_GEOMETRY_ID;
-        rtcIntersect1(scene.scene, &start.context, &rh);
-        if (rh.hit.geomID != RTC_INVALID_GEOMETRY_ID) {
-            const int quad = static_cast<int>(rh.hit.primID);
-            const double rough = rh.ray.tfar - slack_;
-            const double exact =
-                scene.exact_distance(ray.origin, ray.direction, quad, rh.hit.u + rh.hit.v > 1);
-            // At grazing incidence the plane says little; then the rough distance is as good.
-            const double t = std::fabs(exact - rough) < 100 * slack_ ? exact : rough;
-            return finish(ray, Hit::Kind::surface, scene.source[quad], t);
-        }
+        start.near = from_element < 0 ? -1.0f : static_cast<float>(6 * slack_ - ray.length);
+        double t = 0;
+        const int quad = scene.first_hit(start, ray.origin, ray.direction,
+                                         std::min(side, top) + beyond * domain_.spacing, slack_, t);
+        if (quad >= 0)
+            return finish(ray, Hit::Kind::surface, quad, t);
         if (top <= side)
             return top < infinite ? to_open() : finish(ray, Hit::Kind::lost, -1, 0);
         ray.origin += side * ray.direction;

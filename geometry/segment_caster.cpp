@@ -78,142 +78,12 @@ SegmentCaster::SegmentCaster(const Domain& domain, const Surface& surface, doubl
     find_rectangles();
 }
 
-void SegmentCaster::choose_grid(const Surface& surface) {
-    double low = far_away, high = -far_away, length = 0;
-    for (const auto& e : ends_) {
-        low = std::min({low, e[1], e[3]});
-        high = std::max({high, e[1], e[3]});
-        length += std::hypot(e[2] - e[0], e[3] - e[1]);
-    }
-    RILLE_CHECK(z_open_ >= high, "the source plane lies below the top of the surface");
-    const double n = static_cast<double>(surface.size());
-    // Measured: two to four segments a cell and about four cells a segment are fastest.
-    const double area = width_ * (high - low + 1e-3 * length);
-    const double size = std::max(1.5 * length / n, std::sqrt(area / (4 * n)));
-    nx_ = std::max(1, static_cast<int>(std::lround(width_ / size)));
-    cell_x_ = width_ / nx_;
-    // The grid ends exactly at the top: a ray that rises above it is free.
-    z_min_ = low - 0.25 * size;
-    z_top_ = high;
-    nz_ = std::max(1, static_cast<int>(std::ceil((high - z_min_) / size)));
-    cell_z_ = (high - z_min_) / nz_;
-    per_cell_x_ = 1.0 / cell_x_;
-    per_cell_z_ = 1.0 / cell_z_;
-}
-
-void SegmentCaster::fill_cells(const Surface& surface) {
-    // Cells are padded so that round-off in a ray's cell never hides a segment from it.
-    const double pad = 1e-6, half = 0.5 + pad;
-    std::vector<std::vector<int>> lists(static_cast<std::size_t>(nx_) * nz_);
-    const auto column = [&](double x) {
-        return std::clamp(static_cast<int>(std::floor(x)), 0, nx_ - 1);
-    };
-    const auto row = [&](double z) {
-        return std::clamp(static_cast<int>(std::floor(z)), 0, nz_ - 1);
-    };
-    for (int e = 0; e < static_cast<int>(surface.size()); ++e) {
-        const double ax = (ends_[e][0] - x_min_) * per_cell_x_;
-        const double az = (ends_[e][1] - z_min_) * per_cell_z_;
-        const double bx = (ends_[e][2] - x_min_) * per_cell_x_;
-        const double bz = (ends_[e][3] - z_min_) * per_cell_z_;
-        const double sx = bx - ax, sz = bz - az;
-        const double reach = half * (std::fabs(sx) + std::fabs(sz));
-        const int last_x = column(std::max(ax, bx) + pad), last_z = row(std::max(az, bz) + pad);
-        for (int iz = row(std::min(az, bz) - pad); iz <= last_z; ++iz)
-            for (int ix = column(std::min(ax, bx) - pad); ix <= last_x; ++ix) {
-                const double off = sx * (iz + 0.5 - az) - sz * (ix + 0.5 - ax);
-                if (std::fabs(off) <= reach)
-                    lists[static_cast<std::size_t>(iz) * nx_ + ix].push_back(e);
-            }
-    }
-    first_.assign(1, 0);
-    for (const auto& list : lists) {
-        for (const int e : list)
-            segments_.push_back({ends_[e][0], ends_[e][1], ends_[e][2], ends_[e][3], e});
-        first_.push_back(static_cast<int>(segments_.size()));
-    }
-}
-
-/// Sum of occupied cells over [0, ix) x [0, iz), row length nx + 1.
-std::vector<int> SegmentCaster::occupancy_sums() const {
-    const int stride = nx_ + 1;
-    std::vector<int> sums(static_cast<std::size_t>(stride) * (nz_ + 1), 0);
-    for (int iz = 0; iz < nz_; ++iz)
-        for (int ix = 0; ix < nx_; ++ix) {
-            const int c = iz * nx_ + ix;
-            sums[(iz + 1) * stride + ix + 1] =
-                (first_[c + 1] > first_[c]) + sums[iz * stride + ix + 1] +
-                sums[(iz + 1) * stride + ix] - sums[iz * stride + ix];
-        }
-    return sums;
-}
-
-/// Empty cells, those farthest from any segment first (chessboard distance, two sweeps).
-std::vector<int> SegmentCaster::cells_by_clearance() const {
-    std::vector<int> clear(static_cast<std::size_t>(nx_) * nz_);
-    const auto at = [&](int ix, int iz) {
-        ix = std::clamp(ix, 0, nx_ - 1);
-        return iz < 0 || iz >= nz_ ? nx_ + nz_ : clear[iz * nx_ + ix];
-    };
-    for (int c = 0; c < nx_ * nz_; ++c)
-        clear[c] = first_[c + 1] > first_[c] ? 0 : nx_ + nz_;
-    for (const int way : {1, -1})
-        for (int n = 0; n < nx_ * nz_; ++n) {
-            const int c = way > 0 ? n : nx_ * nz_ - 1 - n, ix = c % nx_, iz = c / nx_;
-            clear[c] = std::min(clear[c], 1 + std::min({at(ix - way, iz), at(ix - 1, iz - way),
-                                                        at(ix, iz - way), at(ix + 1, iz - way)}));
-        }
-    std::vector<int> order;
-    for (int c = 0; c < nx_ * nz_; ++c)
-        if (clear[c] > 0)
-            order.push_back(c);
-    std::stable_sort(order.begin(), order.end(), [&](int a, int b) { return clear[a] > clear[b]; });
-    return order;
-}
-
-SegmentCaster::Rectangle SegmentCaster::grow(int ix, int iz, const std::vector<int>& sums) const {
-    const int stride = nx_ + 1;
-    Rectangle r{ix, ix, iz, iz};
-    const auto empty = [&](int x0, int x1, int z0, int z1) {
-        if (x0 < 0 || x1 >= nx_ || z0 < 0 || z1 >= nz_)
-            return false;
-        return sums[(z1 + 1) * stride + x1 + 1] - sums[z0 * stride + x1 + 1] -
-                   sums[(z1 + 1) * stride + x0] + sums[z0 * stride + x0] ==
-               0;
-    };
-    for (bool grew = true; grew;) {
-        grew = false;
-        if (empty(r.x0 - 1, r.x0 - 1, r.z0, r.z1))
-            --r.x0, grew = true;
-        if (empty(r.x1 + 1, r.x1 + 1, r.z0, r.z1))
-            ++r.x1, grew = true;
-        if (empty(r.x0, r.x1, r.z0 - 1, r.z0 - 1))
-            --r.z0, grew = true;
-        if (empty(r.x0, r.x1, r.z1 + 1, r.z1 + 1))
-            ++r.z1, grew = true;
-    }
-    return r;
-}
-
-void SegmentCaster::find_rectangles() {
-    rectangle_of_.assign(static_cast<std::size_t>(nx_) * nz_, -1);
-    const std::vector<int> sums = occupancy_sums();
-    for (const int c : cells_by_clearance()) {
-        if (rectangle_of_[c] >= 0)
-            continue;
-        const Rectangle r = grow(c % nx_, c / nx_, sums);
-        const int id = static_cast<int>(rectangles_.size());
-        rectangles_.push_back(r);
-        for (int iz = r.z0; iz <= r.z1; ++iz)
-            for (int ix = r.x0; ix <= r.x1; ++ix)
-                if (rectangle_of_[iz * nx_ + ix] < 0)
-                    rectangle_of_[iz * nx_ + ix] = id;
-    }
-}
-
 /// Moves the frame to the image in which the ray is at t.
 void SegmentCaster::fold_into_period(Ray& ray, double t) const {
-    const double image = std::floor((ray.ox + t * ray.dx - x_min_) / width_);
+    const double x = ray.ox + t * ray.dx - x_min_;
+    if (x >= 0 && x <= width_)
+        return;
+    const double image = std::floor(x / width_);
     if (image == 0)
         return;
     ray.ox -= image * width_;
@@ -240,6 +110,26 @@ bool SegmentCaster::enter(Ray& ray) const {
     return true;
 }
 
+/// Moves the ray to the cell beyond the edge of a room that it meets first; false if it falls
+/// through the bottom or crosses too many sides.
+bool SegmentCaster::leave(Ray& ray, const Room& room, double tx, double tz) const {
+    ray.t = std::min(tx, tz);
+    const Rectangle& r = room.cells;
+    const bool right = ray.rightwards(), up = ray.upwards(), aside = tx < tz;
+    // Along the other axis the cell never lies behind the present one or outside the room, so
+    // round-off cannot keep a ray from getting on.
+    const int ix = std::clamp(static_cast<int>((ray.ox + ray.t * ray.dx - x_min_) * per_cell_x_),
+                              right ? ray.ix : r.x0, right ? r.x1 : ray.ix);
+    const int iz = std::clamp(static_cast<int>((ray.oz + ray.t * ray.dz - z_min_) * per_cell_z_),
+                              up ? ray.iz : r.z0, up ? r.z1 : ray.iz);
+    const int beyond_x = right ? r.x1 + 1 : r.x0 - 1, beyond_z = up ? r.z1 + 1 : r.z0 - 1;
+    ray.ix = aside ? beyond_x : ix;
+    ray.iz = aside ? iz : beyond_z;
+    if (ray.ix < 0 || ray.ix >= nx_)
+        return cross_side(ray);
+    return ray.iz >= 0;
+}
+
 bool SegmentCaster::cross_side(Ray& ray) const {
     if (++ray.folds > most_folds)
         return false;
@@ -255,26 +145,44 @@ bool SegmentCaster::cross_side(Ray& ray) const {
     return true;
 }
 
-void SegmentCaster::test_cell(const Ray& ray, int cell, Best& best) const {
-    const Segment* const end = segments_.data() + first_[cell + 1];
-    for (const Segment* s = segments_.data() + first_[cell]; s != end; ++s) {
-        const double ax = s->ax - ray.ox, az = s->az - ray.oz;
-        const double bx = s->bx - ray.ox, bz = s->bz - ray.oz;
-        const double side_a = ray.dx * az - ray.dz * ax, side_b = ray.dx * bz - ray.dz * bx;
-        // From the gas the ray sees a on its right and b on its left.
-        if (side_a >= ray.positive || !(side_b >= ray.positive))
+void SegmentCaster::test_runs(const Ray& ray, const Room& room, Best& best) const {
+    const Run* const end = runs_.data() + room.end;
+    for (const Run* run = runs_.data() + room.first; run != end; ++run) {
+        // From behind nothing is hit. The margin leaves what is level with the ray to the test
+        // below.
+        const auto facing = [&](const std::array<double, 2>& n) {
+            return n[0] * ray.dx + n[1] * ray.dz;
+        };
+        if (facing(run->normal_first) > 1e-9 && facing(run->normal_last) > 1e-9)
             continue;
-        if (s->element == ray.from && ray.folds == 0)
-            continue;
-        const double share = side_a / (side_a - side_b);
-        const double ta = ray.dx * ax + ray.dz * az, tb = ray.dx * bx + ray.dz * bz;
-        const double t = ta + share * (tb - ta);
-        if (t < -slack_ || t >= best.t)
-            continue;
-        if (t < slack_ && ray.from >= 0 && behind_at_start(ray.from, s->element))
-            continue;
-        best = {t, share, s->element};
+        std::array<double, 8> side;
+        for (int k = 0; k < 8; ++k)
+            side[k] = ray.dx * (run->z[k] - ray.oz) - ray.dz * (run->x[k] - ray.ox);
+        unsigned right = 0; // bit k: vertex k lies on the right of the ray
+        for (int k = 0; k < 8; ++k)
+            right |= static_cast<unsigned>(side[k] < ray.positive) << k;
+        // From the gas the ray sees a segment's start on its right and its end on its left.
+        for (unsigned crossed = right & ~(right >> 1) & 0x7fu; crossed != 0;
+             crossed &= crossed - 1) {
+            const int k = __builtin_ctz(crossed);
+            test_segment(ray, *run, k, side[k] / (side[k] - side[k + 1]), best);
+        }
     }
+}
+
+void SegmentCaster::test_segment(const Ray& ray, const Run& run, int k, double share,
+                                 Best& best) const {
+    const int element = run.element + k;
+    if (element == ray.from && ray.folds == 0)
+        return;
+    const double ta = ray.dx * (run.x[k] - ray.ox) + ray.dz * (run.z[k] - ray.oz);
+    const double tb = ray.dx * (run.x[k + 1] - ray.ox) + ray.dz * (run.z[k + 1] - ray.oz);
+    const double t = ta + share * (tb - ta);
+    if (t < -slack_ || t >= best.t)
+        return;
+    if (t < slack_ && ray.from >= 0 && behind_at_start(ray.from, element))
+        return;
+    best = {t, share, element};
 }
 
 Hit SegmentCaster::finish_hit(const Ray& ray, const Best& best) const {
@@ -350,7 +258,7 @@ Hit SegmentCaster::trace(const Vec3& origin, const Vec3& direction, int from_ele
     lost.kind = Hit::Kind::lost;
     lost.point = origin;
     lost.direction = direction;
-    const double in_plane = std::hypot(direction.x, direction.z);
+    const double in_plane = std::sqrt(direction.x * direction.x + direction.z * direction.z);
     if (!(in_plane > 1e-12))
         return lost; // along y: it meets nothing and never gets out
     if (from_element >= 0 && starts_in_joint(origin, direction, from_element, lost))
@@ -372,37 +280,17 @@ Hit SegmentCaster::trace(const Vec3& origin, const Vec3& direction, int from_ele
         return ray.dz > 0 ? finish_open(ray) : lost;
     Best best;
     for (;;) {
-        const int cell = ray.iz * nx_ + ray.ix;
-        Rectangle room{ray.ix, ray.ix, ray.iz, ray.iz};
-        if (rectangle_of_[cell] >= 0)
-            room = rectangles_[rectangle_of_[cell]];
-        else
-            test_cell(ray, cell, best);
-        const int edge_x = ray.rightwards() ? room.x1 + 1 : room.x0;
-        const int edge_z = ray.upwards() ? room.z1 + 1 : room.z0;
-        const double tx = (x_min_ + edge_x * cell_x_ - ray.ox) * ray.inverse_x;
-        const double tz = (z_min_ + edge_z * cell_z_ - ray.oz) * ray.inverse_z;
-        const double out = std::min(tx, tz);
-        if (best.element >= 0 && best.t <= out + slack_)
+        const Room& room = rooms_[room_of_[ray.iz * nx_ + ray.ix]];
+        if (room.end > room.first)
+            test_runs(ray, room, best);
+        const double tx = ((ray.rightwards() ? room.x_high : room.x_low) - ray.ox) * ray.inverse_x;
+        const double tz = ((ray.upwards() ? room.z_high : room.z_low) - ray.oz) * ray.inverse_z;
+        if (best.element >= 0 && best.t <= std::min(tx, tz) + slack_)
             return finish_hit(ray, best);
-        ray.t = out;
-        if (tx < tz) {
-            ray.ix = ray.rightwards() ? edge_x : edge_x - 1;
-            const int iz = static_cast<int>((ray.oz + out * ray.dz - z_min_) * per_cell_z_);
-            ray.iz =
-                ray.upwards() ? std::clamp(iz, ray.iz, room.z1) : std::clamp(iz, room.z0, ray.iz);
-            if ((ray.ix < 0 || ray.ix >= nx_) && !cross_side(ray))
-                return lost;
-        } else {
-            ray.iz = ray.upwards() ? edge_z : edge_z - 1;
-            const int ix = static_cast<int>((ray.ox + out * ray.dx - x_min_) * per_cell_x_);
-            ray.ix = ray.rightwards() ? std::clamp(ix, ray.ix, room.x1)
-                                      : std::clamp(ix, room.x0, ray.ix);
-            if (ray.iz >= nz_)
-                return finish_open(ray);
-            if (ray.iz < 0)
-                return lost;
-        }
+        if (!leave(ray, room, tx, tz))
+            return lost;
+        if (ray.iz >= nz_)
+            return finish_open(ray);
     }
 }
 

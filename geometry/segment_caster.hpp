@@ -26,27 +26,42 @@ public:
     Hit trace(const Vec3& origin, const Vec3& direction, int from_element) const;
 
 private:
-    struct Segment {
-        double ax, az, bx, bz;
-        int element;
+    /// Up to seven consecutive elements of a chain: their eight vertices, and the cone of their
+    /// normals. Unused places repeat the last vertex.
+    struct Run {
+        std::array<double, 8> x, z;
+        std::array<double, 2> normal_first, normal_last;
+        int element; ///< of the first two vertices
     };
-    struct Rectangle { // inclusive ranges of cells
+    struct Rectangle { ///< inclusive ranges of cells
         int x0, x1, z0, z1;
+    };
+    /// What a ray crosses in one step: a cell with segments, or a rectangle of empty cells.
+    struct Room {
+        double x_low, x_high, z_low, z_high; ///< [nm]
+        Rectangle cells;
+        int first = 0, end = 0; ///< range in `runs_`
     };
     struct Ray;  // the ray in the frame of the image it is in
     struct Best; // nearest crossing so far
 
     void choose_grid(const Surface&);
     void fill_cells(const Surface&);
+    Run make_run(int first, int count) const;
+    void add_runs(const std::vector<int>& elements, const Surface&);
     void find_rectangles();
     Rectangle grow(int ix, int iz, const std::vector<int>& sums) const;
     std::vector<int> occupancy_sums() const;
+    bool occupied(int cell) const;
+    Room room(const Rectangle&) const;
     std::vector<int> cells_by_clearance() const;
 
     bool enter(Ray&) const;
     void fold_into_period(Ray&, double t) const;
+    bool leave(Ray&, const Room&, double tx, double tz) const;
     bool cross_side(Ray&) const;
-    void test_cell(const Ray&, int cell, Best&) const;
+    void test_runs(const Ray&, const Room&, Best&) const;
+    void test_segment(const Ray&, const Run&, int k, double share, Best&) const;
     Hit finish_hit(const Ray&, const Best&) const;
     Hit finish_open(Ray&) const;
     std::array<double, 2> normal_beyond(int element, int end) const;
@@ -66,10 +81,9 @@ private:
     std::vector<std::array<double, 4>> ends_;  ///< per element: ax, az, bx, bz
     std::vector<std::array<bool, 2>> concave_; ///< per element: at its start, at its end
     std::vector<std::array<int, 2>> joined_;   ///< element before and after; -1 at a mirror side
-    std::vector<int> first_;                   ///< per cell + 1: range in `segments_`
-    std::vector<Segment> segments_;            ///< copies, cell after cell
-    std::vector<int> rectangle_of_;            ///< per cell; -1 where there are segments
-    std::vector<Rectangle> rectangles_;
+    std::vector<int> room_of_;                 ///< per cell
+    std::vector<Room> rooms_;
+    std::vector<Run> runs_; ///< copies, cell after cell
 };
 
 } // namespace rille::geometry

@@ -20,10 +20,11 @@ using engine::SurfaceState;
 
 /// A folder of its own below the system's temporary one, removed at the end.
 class ScratchFolder {
-  public:
+public:
     ScratchFolder() {
         std::string name = (std::filesystem::temp_directory_path() / "rille-test-XXXXXX").string();
-        if (!mkdtemp(name.data())) throw std::runtime_error("no scratch folder");
+        if (!mkdtemp(name.data()))
+            throw std::runtime_error("no scratch folder");
         path_ = name;
     }
     ~ScratchFolder() {
@@ -33,7 +34,7 @@ class ScratchFolder {
     std::string operator/(const std::string& name) const { return path_ + "/" + name; }
     const std::string& path() const { return path_; }
 
-  private:
+private:
     std::string path_;
 };
 
@@ -46,7 +47,10 @@ inline Case trench_case() {
     c.domain.cells_x = 80;
     c.materials = {"resist", "Si", "SiO2", "polymer"};
     const double deep = -std::numeric_limits<double>::infinity();
-    c.films = {{"mask", 0, 180, 0}, {"gate", 1, 0, -240}, {"stop", 2, -240, -252}, {"bulk", 1, -252, deep}};
+    c.films = {{"mask", 0, 180, 0},
+               {"gate", 1, 0, -240},
+               {"stop", 2, -240, -252},
+               {"bulk", 1, -252, deep}};
     c.substrate_first = 1;
     c.mask.thickness = 180;
     geometry::Opening opening;
@@ -60,7 +64,8 @@ inline Case trench_case() {
     c.cd_places = {{"top", {"10 nm below gate top", -10}},
                    {"middle", {"middle of gate", -120}},
                    {"bottom", {"10 nm above stop", -230}}};
-    c.standing = {{fluxes::Standing::published, 14}, {fluxes::Standing::from_memory, 5},
+    c.standing = {{fluxes::Standing::published, 14},
+                  {fluxes::Standing::from_memory, 5},
                   {fluxes::Standing::illustrative, 2}};
     c.resolved_yaml = "format: 1\ntitle: 60 nm gate trench\n";
     engine::RecipeStep main, over;
@@ -86,7 +91,8 @@ inline geometry::Surface etched_trench(const geometry::Domain& domain, double sh
     left.push_back({-20, 0, -depth - 4 * share});
     left.push_back({-13, 0, -depth + 1});
     std::vector<Vec3> points = left;
-    for (auto p = left.rbegin(); p != left.rend(); ++p) points.push_back({-p->x, 0, p->z});
+    for (auto p = left.rbegin(); p != left.rend(); ++p)
+        points.push_back({-p->x, 0, p->z});
     return polyline(domain, points, 2.0);
 }
 
@@ -102,7 +108,8 @@ inline SurfaceState trench_state(const Case& c, double share, double time_s) {
     for (std::size_t e = 0; e < n; ++e) {
         const Vec3 p = state.surface.centre[e];
         const bool wall = std::fabs(state.surface.normal[e].x) > 0.9;
-        if (wall && p.z < 0) state.grown.thickness[0][e] = 1.5 * share;
+        if (wall && p.z < 0)
+            state.grown.thickness[0][e] = 1.5 * share;
         state.film.push_back(p.z > 0 ? 0 : p.z > -240 ? 1 : p.z > -252 ? 2 : 3);
         state.material.push_back(wall && p.z < 0 ? 3 : c.films[state.film.back()].material);
         state.rate.push_back(wall ? 0.01 : 4.1);

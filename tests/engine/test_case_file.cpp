@@ -111,8 +111,10 @@ TEST_CASE("the resolved case holds every default and reads back as the same case
 
 TEST_CASE("without places of its own a case gets three, and they stand in the resolved case") {
     std::string text = read(trench);
-    text = with(text, "measure:\n  cd: {top: 10 nm below gate top, middle: middle of gate, "
-                      "bottom: 10 nm above stop}\n", "");
+    text = with(text,
+                "measure:\n  cd: {top: 10 nm below gate top, middle: middle of gate, "
+                "bottom: 10 nm above stop}\n",
+                "");
     const Case c = parse_case(text, "case.yaml", ".");
     CHECK(c.cd_places.at("bottom").z == -230);
     CHECK(c.resolved_yaml.find("top: 10 nm below gate top") != std::string::npos);
@@ -120,9 +122,10 @@ TEST_CASE("without places of its own a case gets three, and they stand in the re
 }
 
 TEST_CASE("overrides address items of lists by name") {
-    const Case c = load_case(trench, {"mask.openings.trench.cd=50 nm", "stack.gate.thickness=200 nm",
-                                      "plasmas.main.ions={Ar+: 100 %}", "sampling.seed=7",
-                                      "recipe.steps.over.time=10 s"});
+    const Case c =
+        load_case(trench, {"mask.openings.trench.cd=50 nm", "stack.gate.thickness=200 nm",
+                           "plasmas.main.ions={Ar+: 100 %}", "sampling.seed=7",
+                           "recipe.steps.over.time=10 s"});
     CHECK(c.mask.openings.at(0).width_x == 50);
     CHECK(c.films[1].bottom == -200);
     CHECK(c.plasmas.at("main").ions.size() == 1);
@@ -164,8 +167,8 @@ TEST_CASE("films repeat, with numbered names") {
              "      - {name: oxide, material: SiO2, thickness: 20 nm}\n"
              "      - {name: nitride, material: Si3N4, thickness: 25 nm}\n"
              "  - {name: stop, material: SiO2, thickness: 12 nm}\n");
-    const Case c = parse_case(text, "case.yaml", ".", {"measure={cd: {a: middle of pair 1 nitride}}",
-                                                       "targets={}"});
+    const Case c = parse_case(text, "case.yaml", ".",
+                              {"measure={cd: {a: middle of pair 1 nitride}}", "targets={}"});
     REQUIRE(c.films.size() == 4 + 128);
     CHECK(c.films[2].name == "pair 1 oxide");
     CHECK(c.films[3].name == "pair 1 nitride");
@@ -217,8 +220,8 @@ TEST_CASE("a plasma copies another; what is given replaces") {
 }
 
 TEST_CASE("a wrong value in a copied plasma is reported once") {
-    const std::string text = with(with(read(trench), "chemistry:", "  soft: {from: main}\nchemistry:"),
-                                  "1.1 mA/cm2", "1.1");
+    const std::string text = with(
+        with(read(trench), "chemistry:", "  soft: {from: main}\nchemistry:"), "1.1 mA/cm2", "1.1");
     try {
         parse_case(text, "case.yaml", ".");
         FAIL("accepted");

@@ -1,15 +1,11 @@
 // SPDX-License-Identifier: Apache-2.0
 #include "engine/case_file.hpp"
-#include "engine/chemistry_file.hpp"
-#include "engine/materials_file.hpp"
-#include "engine/yaml_reader.hpp"
 #include "fluxes/surface_chemistry.hpp"
+#include "tests/support/chemistry_files.hpp"
 
 #include <catch2/catch.hpp>
 
 #include <cmath>
-#include <filesystem>
-#include <fstream>
 #include <map>
 #include <random>
 #include <string>
@@ -19,51 +15,6 @@ using namespace rille::engine;
 namespace fluxes = rille::fluxes;
 
 namespace {
-
-const std::string configs = std::string(RILLE_ROOT) + "/configs";
-
-std::string report_of(const Problems& problems) {
-    std::string text;
-    for (const Problem& problem : problems.sorted())
-        text += (text.empty() ? "" : "\n") + describe(problem);
-    return text;
-}
-
-const MaterialsLibrary& library() {
-    static const MaterialsLibrary loaded = [] {
-        Problems problems;
-        MaterialsLibrary found = load_materials(configs, problems);
-        INFO(report_of(problems));
-        REQUIRE(problems.empty());
-        return found;
-    }();
-    return loaded;
-}
-
-std::vector<NamedUse> uses(const std::vector<std::string>& names) {
-    std::vector<NamedUse> list;
-    int line = 10;
-    for (const std::string& name : names)
-        list.push_back({name, {"case.yaml", line++, 5}, "stack." + name});
-    return list;
-}
-
-ChemistryRequest request(const std::string& name, const std::vector<std::string>& materials) {
-    ChemistryRequest r;
-    r.chemistry = {name, {"case.yaml", 3, 12}, "chemistry"};
-    r.configs = configs;
-    r.case_folder = ".";
-    r.materials = uses(materials);
-    return r;
-}
-
-Chemistry load(const std::string& name, const std::vector<std::string>& materials) {
-    Problems problems;
-    std::optional<Chemistry> found = load_chemistry(request(name, materials), library(), problems);
-    INFO(report_of(problems));
-    REQUIRE(found);
-    return *found;
-}
 
 constexpr double per_cm2 = 1e-14; ///< cm^-2 s^-1 in nm^-2 s^-1
 constexpr double ma_per_cm2 = 6.2415e15 * per_cm2;
@@ -351,119 +302,6 @@ TEST_CASE("a mechanism holds what the case uses", "[chemistry]") {
     // The same material twice asks for no further tally.
     const Chemistry twice = load("silicon-cl2-ar", {"Si", "resist", "Si"});
     CHECK(twice.mechanism.tallies.size() == all.mechanism.tallies.size());
-}
-
-namespace {
-
-/// Problems of a chemistry file with this text, asked for Si with every species.
-std::string problems_of(const std::string& text) {
-    const std::string path =
-        (std::filesystem::temp_directory_path() / "rille_test_chemistry.yaml").string();
-    std::ofstream(path) << text;
-    Problems problems;
-    load_chemistry(request(path, {"Si"}), library(), problems);
-    std::filesystem::remove(path);
-    std::string report = report_of(problems);
-    for (std::size_t at; (at = report.find(path)) != std::string::npos;)
-        report.replace(at, path.size(), "f");
-    return report;
-}
-
-std::string file_with(const std::string& process) {
-    return "format: 1\ntitle: t\nions: [Ar+]\nneutrals: [Cl]\nmaterials:\n  Si:\n"
-           "    adsorbates: [Cl]\n    processes:\n      - " +
-           process + "\n";
-}
-
-const std::string cited = ", standing: illustrative, source: s}";
-
-} // namespace
-
-// Oracle: the exact message and place of each fault. Source: the texts below. Tolerance: none.
-TEST_CASE("faults of chemistry files are named and placed", "[chemistry]") {
-    const std::string good = "{kind: adsorption, neutral: Cl, adsorbate: Cl, sticking: {value: 0.3";
-    CHECK(problems_of(file_with(good + cited + "}")).empty());
-    CHECK(problems_of(file_with("{kind: adsorbtion}")) ==
-          "f:9:16: materials.Si.processes[1].kind: \"adsorbtion\" is not known here; allowed: "
-          "adsorption, ion adsorption, desorption, recombination, ion-enhanced etching, physical "
-          "sputtering, spontaneous etching, thermal etching, ion removal, neutral removal or "
-          "deposition; did you mean \"adsorption\"?");
-    CHECK(
-        problems_of(file_with(good + ", standing: guessed, source: s}}"))
-            .find("sticking.standing: \"guessed\" is not known here; allowed: measured, published, "
-                  "from memory or illustrative") != std::string::npos);
-    CHECK(problems_of(file_with(good + ", standing: measured}}"))
-              .find("sticking: the key \"source\" is missing") != std::string::npos);
-    CHECK(problems_of(file_with("{kind: adsorption, neutral: Cl, adsorbate: Cl, sticking: 0.3}")) ==
-          "f:9:66: materials.Si.processes[1].sticking: \"0.3\" stands where a cited value is due, "
-          "for example {value: 0.5, standing: published, source: \"...\"}");
-    CHECK(problems_of(file_with("{kind: adsorption, neutral: Cl, adsorbate: Cl, sticking: {value: "
-                                "1.3" +
-                                cited + "}"))
-              .find("\"1.3\" is out of range") != std::string::npos);
-    const std::string bare = "{kind: physical sputtering, on: bare sites, ions: all, yield: "
-                             "{angle: {law: flat}, energy: ";
-    const auto threshold = [&](const std::string& value) {
-        return problems_of(file_with(bare + "{law: square root, threshold: {value: " + value +
-                                     cited + ", amplitude: {value: 0.5 /sqrt(eV)" + cited + "}}}"));
-    };
-    CHECK(threshold("16 eV").empty());
-    CHECK(threshold("16").find("\"16\" has no unit; an energy is due") != std::string::npos);
-    CHECK(threshold("16 V").find("is a voltage: write eV") != std::string::npos);
-    CHECK(problems_of(file_with(bare + "{law: square root, threshold: {value: 16 eV" + cited +
-                                ", amplitude: {value: 0.5" + cited + "}}}"))
-              .find("\"0.5\"; a number in /sqrt(eV) is due, for example 0.5 /sqrt(eV)") !=
-          std::string::npos);
-    CHECK(problems_of(file_with(bare + "{law: square root, threshold: {value: 16 eV" + cited +
-                                ", through: {value: 1, at: 10 eV" + cited + "}}}"))
-              .find("not above the threshold") != std::string::npos);
-    CHECK(
-        problems_of(file_with("{kind: physical sputtering, on: bare sites, ions: [Ar], yield: "
-                              "{angle: {law: flat}, energy: {law: constant, yield: {value: 1" +
-                              cited + "}}}"))
-            .find("\"Ar\" is not among the ions of this chemistry (Ar+); did you mean \"Ar+\"?") !=
-        std::string::npos);
-    CHECK(problems_of(file_with(good + cited +
-                                "}\n      - {kind: recombination, neutral: Cl, on: "
-                                "whole surface, probability: {value: 0.8" +
-                                cited + "}")) ==
-          "f:7:5: materials.Si: the probabilities of Cl on bare sites add up to 1.1 at 300 K, more "
-          "than 1");
-    CHECK(
-        problems_of("format: 1\ntitle: t\nions: [Arr+]\nneutrals: []\nmaterials: {Si: {processes: "
-                    "[]}}\n") ==
-        "f:3:8: ions[1]: \"Arr+\" is not in configs/ions.yaml; did you mean \"Ar+\"?");
-    CHECK(problems_of("format: 2\ntitle: t\nions: []\nneutrals: []\nmaterials: {Si: {processes: "
-                      "[]}}\n") ==
-          "f:1:9: format: \"2\" is out of range; allowed is at least 1 and at most 1");
-    // Materials that the case does not use are checked too.
-    CHECK_FALSE(problems_of("format: 1\ntitle: t\nions: []\nneutrals: []\nmaterials: {Si: "
-                            "{processes: []}, W: {proceses: []}}\n")
-                    .empty());
-}
-
-// Oracle: the exact message. Source: the texts below. Tolerance: none.
-TEST_CASE("what a chemistry does not know is an error of the case", "[chemistry]") {
-    Problems problems;
-    ChemistryRequest r = request("argon-milling", {"Si", "resit"});
-    r.ions = uses({"Xe+"});
-    CHECK_FALSE(load_chemistry(r, library(), problems));
-    CHECK(
-        report_of(problems) ==
-        "case.yaml:10:5: stack.Xe+: the chemistry argon-milling does not know the ion \"Xe+\"; it "
-        "knows Ar+\n"
-        "case.yaml:11:5: stack.resit: the chemistry argon-milling does not know the material "
-        "\"resit\"; it knows Si, SiO2, Si3N4, resist, amorphous carbon, W, Al or Cu; did you mean "
-        "\"resist\"?");
-    Problems unknown;
-    CHECK_FALSE(load_chemistry(request("silicon-cl2", {"Si"}), library(), unknown));
-    CHECK(report_of(unknown) ==
-          "case.yaml:3:12: chemistry: there is no chemistry \"silicon-cl2\"; known: argon-milling, "
-          "oxide-c4f8-ar-o2, silicon-cl2-ar or silicon-sf6-o2, or the path of a file; did you mean "
-          "\"silicon-cl2-ar\"?");
-    Problems missing;
-    CHECK_FALSE(load_chemistry(request("./none.yaml", {"Si"}), library(), missing));
-    CHECK(report_of(missing) == "case.yaml:3:12: chemistry: there is no file ././none.yaml");
 }
 
 // Oracle: a case carries the mechanism of its chemistry, ion masses and standing; a plasma with a

@@ -1,6 +1,6 @@
 // SPDX-License-Identifier: Apache-2.0
-#include "engine/console.hpp"
 #include "engine/caution.hpp"
+#include "engine/console.hpp"
 #include "tests/engine/output_samples.hpp"
 
 #include <catch2/catch.hpp>
@@ -53,7 +53,7 @@ TEST_CASE("console: the closing words hold the warnings, the standing and the ca
     Metrics metrics;
     metrics.metrics = {{"bottom cd", "trench", 58.2, "nm", 0.3, "", ""}};
     const std::string text = closing_text(c, record, metrics, "out/run");
-    for (const char* part : {"58.2 ± 0.3 nm", "charging is not modelled", "2 illustrative", "out/run",
-                             "main: 0.00 to 61.50 s, reached stop at trench", caution})
+    for (const char* part : {"58.2 ± 0.3 nm", "charging is not modelled", "2 illustrative",
+                             "out/run", "main: 0.00 to 61.50 s, reached stop at trench", caution})
         CHECK(text.find(part) != std::string::npos);
 }

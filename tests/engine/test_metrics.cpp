@@ -21,7 +21,8 @@ double value_of(const Metrics& m, const std::string& name) {
 
 SurfaceState state_of(const Case& c, const std::vector<Vec3>& half, double length = 1.0) {
     std::vector<Vec3> points = half;
-    for (auto p = half.rbegin(); p != half.rend(); ++p) points.push_back({-p->x, 0, p->z});
+    for (auto p = half.rbegin(); p != half.rend(); ++p)
+        points.push_back({-p->x, 0, p->z});
     SurfaceState state;
     state.surface = tests::polyline(c.domain, points, length);
     return state;
@@ -43,8 +44,8 @@ TEST_CASE("metrics: a tapered trench with a faceted mask against closed forms") 
     // (-45, 120) to (-33, 100), mask wall to (-30, 0), film wall to (-24, -246), flat floor.
     // Source: derived here. Tolerance: 1e-9 nm (round-off), 1e-6 deg.
     const Case c = tests::trench_case();
-    const SurfaceState state = state_of(
-        c, {{-80, 0, 120}, {-45, 0, 120}, {-33, 0, 100}, {-30, 0, 0}, {-24, 0, -246}});
+    const SurfaceState state =
+        state_of(c, {{-80, 0, 120}, {-45, 0, 120}, {-33, 0, 100}, {-30, 0, 0}, {-24, 0, -246}});
     const Metrics m = measure(c, state);
     const auto width = [](double z) { return 2 * (30 + 6 * z / 246); };
     CHECK(value_of(m, "depth centre") == Approx(246).margin(1e-9));
@@ -65,7 +66,8 @@ TEST_CASE("metrics: a tapered trench with a faceted mask against closed forms") 
     CHECK(value_of(m, "selectivity") == Approx(246.0 / 60).margin(1e-9));
     CHECK(value_of(m, "facet angle") == Approx(std::atan2(20, 12) * 180 / M_PI).margin(1e-6));
     // Undercut: half the difference of the CD one spacing (2 nm) below and above the mask bottom.
-    CHECK(value_of(m, "undercut") == Approx(0.5 * (width(-2) - (60 + 2 * 2 * 3.0 / 100))).margin(1e-9));
+    CHECK(value_of(m, "undercut") ==
+          Approx(0.5 * (width(-2) - (60 + 2 * 2 * 3.0 / 100))).margin(1e-9));
     CHECK(value_of(m, "stop loss") == Approx(6).margin(1e-9));
     REQUIRE(m.clearing.size() == 2);
     CHECK(m.clearing[0].film == "gate");
@@ -79,9 +81,15 @@ TEST_CASE("metrics: bow is measured on film walls, and the mask does not count")
     // Oracle: widest at (-38, -80) on the film wall; the mask is wider still. Source: derived here.
     // Tolerance: 1e-9 nm.
     const Case c = tests::trench_case();
-    const SurfaceState state = state_of(c, {{-80, 0, 120}, {-50, 0, 120}, {-30, 0, 0}, {-30, 0, -20},
-                                            {-38, 0, -80}, {-28, 0, -200}, {-28, 0, -210},
-                                            {-20, 0, -214}, {-12, 0, -210}});
+    const SurfaceState state = state_of(c, {{-80, 0, 120},
+                                            {-50, 0, 120},
+                                            {-30, 0, 0},
+                                            {-30, 0, -20},
+                                            {-38, 0, -80},
+                                            {-28, 0, -200},
+                                            {-28, 0, -210},
+                                            {-20, 0, -214},
+                                            {-12, 0, -210}});
     const Metrics m = measure(c, state);
     CHECK(value_of(m, "bow cd") == Approx(76).margin(1e-9));
     CHECK(value_of(m, "bow depth") == Approx(80).margin(1e-9));
@@ -112,7 +120,8 @@ TEST_CASE("metrics: sampling errors from the batches") {
     // Left and right walls that err against each other leave the CD as it is.
     for (auto& batch : state.displacement)
         for (std::size_t e = 0; e < batch.size(); ++e)
-            if (state.surface.centre[e].x < 0) batch[e] = -batch[e];
+            if (state.surface.centre[e].x < 0)
+                batch[e] = -batch[e];
     CHECK(measure(c, state).find("top cd")->sampling_error == Approx(0).margin(1e-9));
 }
 
@@ -141,7 +150,8 @@ TEST_CASE("metrics: a round hole has CD in x, in y and by area") {
     c.mask.openings[0].shape = geometry::Opening::Shape::round;
     c.mask.openings[0].width_y = 60;
     SurfaceState state;
-    state.surface = tests::revolved_hole(c.domain, {{30, 0}, {30, -60}, {30, -120.5}, {30, -246}, {0, -246}}, 96);
+    state.surface = tests::revolved_hole(
+        c.domain, {{30, 0}, {30, -60}, {30, -120.5}, {30, -246}, {0, -246}}, 96);
     const Metrics m = measure(c, state);
     CHECK(value_of(m, "top cd") == Approx(value_of(m, "top cd y")).margin(1e-6));
     const double area = 48 * 900 * std::sin(2 * M_PI / 96);

@@ -22,25 +22,31 @@ namespace {
 std::vector<std::string> split(const std::string& text, char separator) {
     std::vector<std::string> parts;
     std::istringstream stream(text);
-    for (std::string part; std::getline(stream, part, separator);) parts.push_back(part);
-    if (!text.empty() && text.back() == separator && separator == ',') parts.emplace_back();
+    for (std::string part; std::getline(stream, part, separator);)
+        parts.push_back(part);
+    if (!text.empty() && text.back() == separator && separator == ',')
+        parts.emplace_back();
     return parts;
 }
 
 /// Columns that hold words or numbers of things; every other one must name its unit.
 bool has_unit(const std::string& column) {
     for (const char* word : {"step", "material", "film", "chain"})
-        if (column == word) return true;
-    for (const char* unit : {"_nm", "_nm2", "_s", "_deg", "_nm_per_min", "_per_nm2_s", "_1", "_count", "_cells"}) {
+        if (column == word)
+            return true;
+    for (const char* unit :
+         {"_nm", "_nm2", "_s", "_deg", "_nm_per_min", "_per_nm2_s", "_1", "_count", "_cells"}) {
         const std::size_t n = std::strlen(unit);
-        if (column.size() > n && column.compare(column.size() - n, n, unit) == 0) return true;
+        if (column.size() > n && column.compare(column.size() - n, n, unit) == 0)
+            return true;
     }
     return false;
 }
 
 bool well_formed(const std::string& xml) {
     const GMarkupParser parser{};
-    GMarkupParseContext* context = g_markup_parse_context_new(&parser, GMarkupParseFlags(0), nullptr, nullptr);
+    GMarkupParseContext* context =
+        g_markup_parse_context_new(&parser, GMarkupParseFlags(0), nullptr, nullptr);
     const bool fine = g_markup_parse_context_parse(context, xml.data(), xml.size(), nullptr) &&
                       g_markup_parse_context_end_parse(context, nullptr);
     g_markup_parse_context_free(context);
@@ -78,14 +84,16 @@ TEST_CASE("history.csv: units in every header, one field a column") {
     const auto lines = split(history_csv(c, {sample_row(), HistoryRow()}), '\n');
     REQUIRE(lines.size() == 3);
     const auto columns = split(lines[0], ',');
-    for (const std::string& column : columns) CHECK(has_unit(column));
+    for (const std::string& column : columns)
+        CHECK(has_unit(column));
     CHECK_FALSE(has_unit("depth")); // the check can fail
     CHECK(lines[1].find("\"main, first\"") != std::string::npos);
     CHECK(lines[1].find("1234567890123") != std::string::npos);
     CHECK(split(lines[2], ',').size() == columns.size()); // the empty row has no quoted comma
     CHECK(split(lines[1], ',').size() == columns.size() + 1);
     // Places are sorted by name: bottom, middle, top; an absent CD is an empty field.
-    CHECK(lines[0].find("trench_cd_bottom_nm,trench_cd_middle_nm,trench_cd_top_nm") != std::string::npos);
+    CHECK(lines[0].find("trench_cd_bottom_nm,trench_cd_middle_nm,trench_cd_top_nm") !=
+          std::string::npos);
     CHECK(lines[1].find("12.5,13,60,,61,170,240,0") != std::string::npos);
 }
 
@@ -95,13 +103,15 @@ TEST_CASE("profile.csv: a line an element, units, arc length and errors") {
     const auto lines = split(profile_csv(c, state), '\n');
     REQUIRE(lines.size() == state.surface.size() + 1);
     const auto columns = split(lines[0], ',');
-    for (const std::string& column : columns) CHECK(has_unit(column));
+    for (const std::string& column : columns)
+        CHECK(has_unit(column));
     const auto column = [&](const std::string& name) {
         return std::find(columns.begin(), columns.end(), name) - columns.begin();
     };
     REQUIRE(column("grown_polymer_nm") < static_cast<long>(columns.size()));
     double length = 0;
-    for (const double piece : state.surface.area) length += piece;
+    for (const double piece : state.surface.area)
+        length += piece;
     const auto last = split(lines.back(), ',');
     REQUIRE(last.size() == columns.size());
     CHECK(std::stod(last[column("arc_length_nm")]) ==
@@ -120,7 +130,8 @@ TEST_CASE("sampling error: eight batches against the closed form") {
     // Tolerance: 1e-6 relative, the digits of the table.
     const std::vector<double> w = {0.1, -0.2, 0.3, -0.1, 0.05, -0.25, 0.15, -0.05};
     double sum = 0;
-    for (const double x : w) sum += x * x;
+    for (const double x : w)
+        sum += x * x;
     const double exact = 2.364624 * std::sqrt(sum / 56);
     CHECK(sampling_error(w) == Approx(exact).epsilon(1e-6));
     CHECK_FALSE(sampling_error(w) == Approx(1.02 * exact).epsilon(1e-6));
@@ -190,9 +201,11 @@ TEST_CASE("run.json: what a result needs to be traced back") {
     CHECK(json["parameter_standing"]["illustrative"] == 2);
     CHECK(json["program"]["version"].get<std::string>().size() > 2);
     // Oracle: SHA-256 of "abc". Source: the standard's own example, from memory. Exact.
-    CHECK(content_hash("abc") == "ba7816bf8f01cfea414140de5dae2223b00361a396177a9cb410ff61f20015ad");
+    CHECK(content_hash("abc") ==
+          "ba7816bf8f01cfea414140de5dae2223b00361a396177a9cb410ff61f20015ad");
     CHECK(json["case_sha256"] == content_hash(c.resolved_yaml));
     c.resolved_yaml += " ";
     CHECK(record_json(c, record, {})["case_sha256"] != json["case_sha256"]);
-    CHECK(standing_line(c) == "parameters: 0 measured, 14 published, 5 from memory, 2 illustrative");
+    CHECK(standing_line(c) ==
+          "parameters: 0 measured, 14 published, 5 from memory, 2 illustrative");
 }

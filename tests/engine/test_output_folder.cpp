@@ -26,7 +26,7 @@ std::vector<std::string> names_in(const std::string& folder) {
 
 /// Lets no file of this process grow beyond a size: a disk that is full, for a while.
 class FullDisk {
-  public:
+public:
     explicit FullDisk(rlim_t bytes) {
         getrlimit(RLIMIT_FSIZE, &before_);
         rlimit limit = before_;
@@ -39,7 +39,7 @@ class FullDisk {
         std::signal(SIGXFSZ, handler_);
     }
 
-  private:
+private:
     rlimit before_{};
     void (*handler_)(int);
 };

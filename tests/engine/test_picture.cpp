@@ -2,6 +2,8 @@
 #include "engine/output_folder.hpp"
 #include "engine/palette.hpp"
 #include "engine/picture.hpp"
+#include "geometry/front.hpp"
+#include "geometry/initial_shape.hpp"
 #include "tests/engine/output_samples.hpp"
 
 #include <cairo.h>
@@ -29,14 +31,16 @@ Image decode(const std::string& png) {
     } source{png};
     const auto read = [](void* closure, unsigned char* data, unsigned int length) {
         auto& from = *static_cast<Source*>(closure);
-        if (from.at + length > from.bytes.size()) return CAIRO_STATUS_READ_ERROR;
+        if (from.at + length > from.bytes.size())
+            return CAIRO_STATUS_READ_ERROR;
         std::memcpy(data, from.bytes.data() + from.at, length);
         from.at += length;
         return CAIRO_STATUS_SUCCESS;
     };
     cairo_surface_t* surface = cairo_image_surface_create_from_png_stream(read, &source);
     REQUIRE(cairo_surface_status(surface) == CAIRO_STATUS_SUCCESS);
-    Image image{cairo_image_surface_get_width(surface), cairo_image_surface_get_height(surface), {}};
+    Image image{
+        cairo_image_surface_get_width(surface), cairo_image_surface_get_height(surface), {}};
     const unsigned char* data = cairo_image_surface_get_data(surface);
     for (int y = 0; y < image.height; ++y)
         for (int x = 0; x < image.width; ++x) {
@@ -55,15 +59,21 @@ Metric metric(const std::string& name, double value, const std::string& unit, do
 Metrics sample_metrics() {
     Metrics m;
     m.time_s = 75.2;
-    m.metrics = {metric("depth centre", 245.0, "nm", 0.8),  metric("depth edge", 249.6, "nm", 0.9),
-                 metric("microtrench depth", 5.0, "nm", 0.3), metric("bottom cd", 54.7, "nm", 0.4),
-                 metric("middle cd", 63.9, "nm", 0.3),        metric("top cd", 63.2, "nm", 0.3),
-                 metric("bow cd", 69.3, "nm", 0.4),           metric("bow", 6.1, "nm", 0.5),
+    m.metrics = {metric("depth centre", 245.0, "nm", 0.8),
+                 metric("depth edge", 249.6, "nm", 0.9),
+                 metric("microtrench depth", 5.0, "nm", 0.3),
+                 metric("bottom cd", 54.7, "nm", 0.4),
+                 metric("middle cd", 63.9, "nm", 0.3),
+                 metric("top cd", 63.2, "nm", 0.3),
+                 metric("bow cd", 69.3, "nm", 0.4),
+                 metric("bow", 6.1, "nm", 0.5),
                  metric("sidewall angle left", 88.9, "deg", 0.1),
                  metric("sidewall angle right", 88.9, "deg", 0.1),
-                 metric("mask left", 85.0, "nm", 0.4),        metric("facet angle", 57.0, "deg", 0.6),
+                 metric("mask left", 85.0, "nm", 0.4),
+                 metric("facet angle", 57.0, "deg", 0.6),
                  metric("selectivity", 2.58, "1", 0.02)};
-    m.targets = {{"bottom cd: 55 to 65 nm", "bottom cd", "trench", Verdict::undecided, Verdict::undecided, ""},
+    m.targets = {{"bottom cd: 55 to 65 nm", "bottom cd", "trench", Verdict::undecided,
+                  Verdict::undecided, ""},
                  {"bow: at most 4 nm", "bow", "trench", Verdict::undecided, Verdict::missed, ""}};
     m.clearing = {{"trench", "gate", true, 0}, {"trench", "stop", false, 7}};
     return m;
@@ -73,7 +83,8 @@ std::vector<PictureFront> sample_fronts(const Case& c, int count, double end_s) 
     std::vector<PictureFront> fronts;
     for (int i = 0; i < count; ++i) {
         const double share = i / double(count - 1);
-        fronts.push_back({end_s * share, vertical_section(c.domain, tests::etched_trench(c.domain, share), 0)});
+        fronts.push_back(
+            {end_s * share, vertical_section(c.domain, tests::etched_trench(c.domain, share), 0)});
     }
     return fronts;
 }
@@ -81,7 +92,8 @@ std::vector<PictureFront> sample_fronts(const Case& c, int count, double end_s) 
 /// Leaves pictures for the eye where RILLE_TEST_PICTURES names a folder.
 void keep(const std::string& name, const std::string& svg, const std::string& png) {
     const char* folder = std::getenv("RILLE_TEST_PICTURES");
-    if (!folder) return;
+    if (!folder)
+        return;
     std::ofstream(std::string(folder) + "/" + name + ".svg") << svg;
     std::ofstream(std::string(folder) + "/" + name + ".png", std::ios::binary) << png;
 }
@@ -92,17 +104,18 @@ TEST_CASE("picture: a trench, as SVG and PNG") {
     const Case c = tests::trench_case();
     const SurfaceState last = tests::trench_state(c, 1, 75.2);
     const std::string svg = picture_svg(c, sample_fronts(c, 11, 75.2), last, sample_metrics());
-    for (const char* part : {"model prediction, not a released recipe", "14 published", "2 illustrative",
-                             "errors shown are numerical only", "54.7 ± 0.4", "gate, Si 240 nm",
-                             "polymer (grown)", "7.00 nm left", "bow: at most 4 nm"})
+    for (const char* part :
+         {"model prediction, not a released recipe", "14 published", "2 illustrative",
+          "errors shown are numerical only", "54.7 ± 0.4", "gate, Si 240 nm", "polymer (grown)",
+          "7.00 nm left", "bow: at most 4 nm"})
         CHECK(svg.find(part) != std::string::npos);
     CHECK(svg.find("http://") == svg.rfind("http://")); // the name space only: nothing is fetched
     const std::string png = png_of(svg, 2);
     keep("trench", svg, png);
     const Image image = decode(png);
     double width = 0, height = 0;
-    REQUIRE(std::sscanf(std::strstr(svg.c_str(), "width=\""), "width=\"%lf\" height=\"%lf\"", &width,
-                        &height) == 2);
+    REQUIRE(std::sscanf(std::strstr(svg.c_str(), "width=\""), "width=\"%lf\" height=\"%lf\"",
+                        &width, &height) == 2);
     CHECK(image.width == std::lround(2 * width));
     CHECK(image.height == std::lround(2 * height));
     // Every material's own colour is there, over an area to be seen.
@@ -132,10 +145,12 @@ TEST_CASE("picture: a void stays empty, the solid around it is filled") {
     SurfaceState last;
     last.surface = tests::polyline(c.domain, {{-80, 0, 0}, {80, 0, 0}}, 2);
     geometry::Surface loop; // walked with the gas on the left, so anticlockwise seen along -y
-    const std::vector<tests::Vec3> ring = {{-30, 0, -40}, {30, 0, -40}, {30, 0, -160}, {-30, 0, -160}};
+    const std::vector<tests::Vec3> ring = {
+        {-30, 0, -40}, {30, 0, -40}, {30, 0, -160}, {-30, 0, -160}};
     const int first = static_cast<int>(last.surface.size());
     const int vertex = static_cast<int>(last.surface.vertices.size());
-    for (int i = 0; i < 4; ++i) last.surface.vertices.push_back(ring[3 - i]);
+    for (int i = 0; i < 4; ++i)
+        last.surface.vertices.push_back(ring[3 - i]);
     for (int i = 0; i < 4; ++i) {
         tests::add_element(last.surface, {vertex + i, vertex + (i + 1) % 4, -1, -1});
         last.surface.chain.back() = 1;
@@ -154,7 +169,12 @@ TEST_CASE("picture: a void stays empty, the solid around it is filled") {
     const std::string png = png_of(svg, 1);
     keep("void", svg, png);
     SurfaceState solid = last;
-    solid.surface = tests::polyline(c.domain, {{-80, 0, 0}, {80, 0, 0}, }, 2);
+    solid.surface = tests::polyline(c.domain,
+                                    {
+                                        {-80, 0, 0},
+                                        {80, 0, 0},
+                                    },
+                                    2);
     CHECK(decode(png).colours.at(0x7a9cc6) > 10000);
 }
 
@@ -165,8 +185,10 @@ TEST_CASE("picture: narrow periods are stretched and say so, wide ones turn the 
     c.cd_places = {{"top", {"", -100}}, {"middle", {"", -2000}}, {"bottom", {"", -3900}}};
     SurfaceState last;
     last.time_s = 900;
-    last.surface = tests::polyline(c.domain, {{-80, 0, 120}, {-32, 0, 120}, {-28, 0, -4010}, {28, 0, -4010},
-                                              {32, 0, 120}, {80, 0, 120}}, 20);
+    last.surface = tests::polyline(
+        c.domain,
+        {{-80, 0, 120}, {-32, 0, 120}, {-28, 0, -4010}, {28, 0, -4010}, {32, 0, 120}, {80, 0, 120}},
+        20);
     std::string svg = picture_svg(c, {{900, vertical_section(c.domain, last.surface, 0)}}, last,
                                   sample_metrics());
     CHECK(svg.find("times the scale of depths") != std::string::npos);
@@ -180,10 +202,20 @@ TEST_CASE("picture: narrow periods are stretched and say so, wide ones turn the 
     second.centre_x = 300;
     wide.mask.openings[0].centre_x = -300;
     wide.mask.openings.push_back(second);
-    last.surface = tests::polyline(wide.domain, {{-600, 0, 150}, {-330, 0, 150}, {-330, 0, -200}, {-270, 0, -200},
-                                                 {-270, 0, 150}, {150, 0, 150}, {152, 0, -246}, {448, 0, -246},
-                                                 {450, 0, 150}, {600, 0, 150}}, 20);
-    svg = picture_svg(wide, {{900, vertical_section(wide.domain, last.surface, 0)}}, last, sample_metrics());
+    last.surface = tests::polyline(wide.domain,
+                                   {{-600, 0, 150},
+                                    {-330, 0, 150},
+                                    {-330, 0, -200},
+                                    {-270, 0, -200},
+                                    {-270, 0, 150},
+                                    {150, 0, 150},
+                                    {152, 0, -246},
+                                    {448, 0, -246},
+                                    {450, 0, 150},
+                                    {600, 0, 150}},
+                                   20);
+    svg = picture_svg(wide, {{900, vertical_section(wide.domain, last.surface, 0)}}, last,
+                      sample_metrics());
     const std::string png = png_of(svg, 2);
     keep("wide", svg, png);
     CHECK(svg.find("times the scale of depths") == std::string::npos);
@@ -199,8 +231,10 @@ TEST_CASE("picture: a hole in full symmetry, with its plan view") {
     c.mask.openings[0].shape = geometry::Opening::Shape::round;
     SurfaceState last;
     last.time_s = 120;
-    last.surface = tests::revolved_hole(c.domain, {{34, 0}, {30, -40}, {31, -100}, {26, -210}, {0, -210}}, 48);
-    for (auto& v : last.surface.vertices) v.z += 60; // top of the mask at 60 nm
+    last.surface =
+        tests::revolved_hole(c.domain, {{34, 0}, {30, -40}, {31, -100}, {26, -210}, {0, -210}}, 48);
+    for (auto& v : last.surface.vertices)
+        v.z += 60; // top of the mask at 60 nm
     const Section section = vertical_section(c.domain, last.surface, section_y(c));
     REQUIRE(section.size() == 1);
     double left = 0, right = 0;
@@ -219,8 +253,14 @@ TEST_CASE("picture: a hole in full symmetry, with its plan view") {
 }
 
 TEST_CASE("palette: materials stay apart in grey and by hatch") {
-    const std::vector<std::string> materials = {"Si", "SiO2", "resist", "Si3N4", "amorphous carbon",
-                                                "W", "fluorocarbon polymer", "something else"};
+    const std::vector<std::string> materials = {"Si",
+                                                "SiO2",
+                                                "resist",
+                                                "Si3N4",
+                                                "amorphous carbon",
+                                                "W",
+                                                "fluorocarbon polymer",
+                                                "something else"};
     const auto looks = material_looks(materials);
     std::set<std::string> colours;
     std::set<int> hatches;
@@ -233,9 +273,41 @@ TEST_CASE("palette: materials stay apart in grey and by hatch") {
     CHECK(colours.size() == 8);
     CHECK(hatches.size() == 8);
     std::sort(greys.begin(), greys.end());
-    for (std::size_t i = 1; i < greys.size(); ++i) CHECK(greys[i] - greys[i - 1] >= 7);
+    for (std::size_t i = 1; i < greys.size(); ++i)
+        CHECK(greys[i] - greys[i - 1] >= 7);
     // Oracle: L* of white is 100, of #777777 about 50. Source: CIE 1976, from memory. 0.5.
     CHECK(lightness("#ffffff") == Approx(100).margin(0.01));
     CHECK(lightness("#777777") == Approx(50).margin(0.5));
     CHECK(material_looks({"Si", "Si"}).size() == 2);
+}
+
+TEST_CASE("picture: sections of a hole's front as the level set gives it") {
+    // Oracle: a hole of radius 28 nm through a mask of 60 nm: one line from side to side, one ring
+    // in plan, walls at x = -28 and 28. Source: derived here. Tolerance: a tenth of a cell (0.2
+    // nm).
+    Case c = tests::trench_case();
+    c.title = "hole before the etch";
+    c.domain.symmetry = geometry::Symmetry::full;
+    c.domain.cells_x = c.domain.cells_y = 48;
+    c.mask.thickness = 60;
+    c.mask.openings[0].shape = geometry::Opening::Shape::round;
+    c.mask.openings[0].width_x = c.mask.openings[0].width_y = 56;
+    const geometry::Front front(c.domain, geometry::initial_distance(c.domain, c.mask), -8,
+                                c.mask.thickness + 8);
+    SurfaceState last;
+    last.surface = geometry::extract_surface(front);
+    const Section section = vertical_section(c.domain, last.surface, section_y(c));
+    REQUIRE(section.size() == 1);
+    CHECK_FALSE(section[0].closed);
+    CHECK(std::fabs(section[0].points.front()[0]) == Approx(48).margin(1e-9));
+    CHECK(std::fabs(section[0].points.back()[0]) == Approx(48).margin(1e-9));
+    double left = 0, right = 0;
+    REQUIRE(walls_at(section, 30, 0, left, right));
+    CHECK(left == Approx(-28).margin(0.2));
+    CHECK(right == Approx(28).margin(0.2));
+    const Section plan = horizontal_section(last.surface, 30);
+    REQUIRE(plan.size() == 1);
+    CHECK(plan[0].closed);
+    const std::string svg = picture_svg(c, {{0, section}}, last, Metrics());
+    keep("front", svg, png_of(svg, 1));
 }

@@ -52,6 +52,7 @@ struct Feature {
     Domain domain;
     Surface surface;
     double depth = 0;
+    double facets = 0; ///< relative error because the surface is not quite the table's
 };
 
 Feature trench(double aspect) {
@@ -69,6 +70,8 @@ Feature hole(double aspect) {
     f.domain.cells_x = f.domain.cells_y = 30;
     f.depth = aspect * diameter;
     constexpr int around = 32;
+    // Perimeter over area is 0.16 % above the circle's, the flux changes by up to a third of that.
+    f.facets = 5e-4;
     const double step = 2 * std::acos(-1.0) / around;
     const double r = 0.5 * diameter * std::sqrt(step / std::sin(step));
     std::vector<std::array<double, 2>> profile;
@@ -140,7 +143,7 @@ void compare(const Feature& f, const std::map<std::string, double>& row,
     for (const auto& [key, value] : values) {
         const tests::Mean mean(value);
         const double exact = row.at(key), unit = std::sqrt((scrambles - 3.0) / (scrambles - 1));
-        out.pulls.push_back(unit * (mean.value - exact) / mean.error);
+        out.pulls.push_back((mean.value - exact) / std::hypot(mean.error / unit, f.facets * exact));
         out.largest_error = std::max(out.largest_error, mean.error / exact);
         out.largest_deviation = std::max(out.largest_deviation, std::fabs(mean.value / exact - 1));
     }
@@ -191,7 +194,7 @@ TEST_CASE("neutrals in a closed trench", "[neutrals]") {
     // Source: computed (integral equation, 1e-8).
     // Tolerance: 52 independent bins, chi2/nu within 1 +- 4 sqrt(2/nu), largest pull < 4.5, mean
     // pull < 4/sqrt(n); standard errors < 1 %; values 2 % high must fail.
-    check(compare_all(trench, "closed_trench.csv", {1, 2, 5, 10}, stickings, 32));
+    check(compare_all(trench, "closed_trench.csv", {1, 2, 5, 10}, stickings, 20));
     const auto off = compare_all(trench, "closed_trench.csv", {1, 2}, stickings, 16, 1.02);
     CHECK_FALSE(tests::Pulls(off.pulls).agree());
 }

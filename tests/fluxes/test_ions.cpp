@@ -16,7 +16,9 @@ namespace {
 constexpr double pi = 3.14159265358979323846;
 constexpr double degree = pi / 180;
 
-double polar_deg(const Vec3& d) { return std::atan2(std::hypot(d.x, d.y), -d.z) / degree; }
+double polar_deg(const Vec3& d) {
+    return std::atan2(std::hypot(d.x, d.y), -d.z) / degree;
+}
 
 /// Share of `count` samples within an angle, sampled independently.
 double sampled_share(const IonDistribution& ions, double angle_deg, int count, std::uint64_t seed) {
@@ -35,7 +37,8 @@ double pull(double measured, double expected, int count) {
 /// The cosine law as a fine histogram: share sin^2 of the polar angle.
 IonDistribution cosine_histogram(double energy, int bins) {
     std::vector<double> edges, weight;
-    for (int a = 0; a <= bins; ++a) edges.push_back(90.0 * a / bins);
+    for (int a = 0; a <= bins; ++a)
+        edges.push_back(90.0 * a / bins);
     for (int a = 0; a < bins; ++a)
         weight.push_back(std::pow(std::sin(edges[a + 1] * degree), 2) -
                          std::pow(std::sin(edges[a] * degree), 2));
@@ -45,9 +48,9 @@ IonDistribution cosine_histogram(double energy, int bins) {
 } // namespace
 
 TEST_CASE("thermal ions in free fall: polar-angle distribution", "[ions]") {
-    // Oracle: F(th) = 1 - exp(-(V/Tperp) tan^2 th) / (1 + (Tpar/Tperp) tan^2 th), seven printed values.
-    // Source: derived here from Liouville's theorem; values computed, one checked by Monte Carlo.
-    // Tolerance: 1e-6 analytic; 4 standard errors of 200,000 independent samples.
+    // Oracle: F(th) = 1 - exp(-(V/Tperp) tan^2 th) / (1 + (Tpar/Tperp) tan^2 th), seven printed
+    // values. Source: derived here from Liouville's theorem; values computed, one checked by Monte
+    // Carlo. Tolerance: 1e-6 analytic; 4 standard errors of 200,000 independent samples.
     struct Row {
         double angle, drop, across, along, share;
     };
@@ -103,22 +106,26 @@ TEST_CASE("thermal ions: widths, energies and the in-plane spread", "[ions]") {
 }
 
 TEST_CASE("histogram round trips", "[ions]") {
-    // Oracle: F(th) of thermal ions binned by F and read back; arcsine energy distribution with mean
+    // Oracle: F(th) of thermal ions binned by F and read back; arcsine energy distribution with
+    // mean
     //         200, variance 150^2/2, bin masses of [50,60], [190,210], [320,350] eV.
-    // Source: sheath voltage of one sine, derived here; masses computed (0.116886, 0.042473, 0.204833).
-    // Tolerance: 1e-9 at edges; mean 0.1 bin; masses 1e-6; samples 4 standard errors.
+    // Source: sheath voltage of one sine, derived here; masses computed (0.116886, 0.042473,
+    // 0.204833). Tolerance: 1e-9 at edges; mean 0.1 bin; masses 1e-6; samples 4 standard errors.
     const double drop = 100, across = 0.5;
     const auto exact = IonDistribution::thermal_fall(drop, across, 0);
     std::vector<double> angles, energies, shares;
-    for (int a = 0; a <= 60; ++a) angles.push_back(0.5 * a);
+    for (int a = 0; a <= 60; ++a)
+        angles.push_back(0.5 * a);
     for (int a = 0; a < 60; ++a)
         shares.push_back(exact.share_within_deg(angles[a + 1]) - exact.share_within_deg(angles[a]));
     const auto cdf = [](double e) { return 0.5 + std::asin((e - 200) / 150) / pi; };
     std::vector<std::vector<double>> weight;
-    for (int e = 0; e <= 60; ++e) energies.push_back(50 + 5 * e);
+    for (int e = 0; e <= 60; ++e)
+        energies.push_back(50 + 5 * e);
     for (int e = 0; e < 60; ++e) {
         weight.push_back(shares);
-        for (double& w : weight.back()) w *= 7 * (cdf(energies[e + 1]) - cdf(energies[e]));
+        for (double& w : weight.back())
+            w *= 7 * (cdf(energies[e + 1]) - cdf(energies[e]));
     }
     const auto read = IonDistribution::histogram(energies, angles, weight);
     for (int a = 0; a <= 60; ++a)
@@ -135,7 +142,8 @@ TEST_CASE("histogram round trips", "[ions]") {
         const double e = read.sample({u(0), u(1), u(2), u(3)}).energy_ev;
         sum += e;
         squares += (e - 200) * (e - 200);
-        for (int b = 0; b < 3; ++b) inside[b] += e >= bins[b][0] && e < bins[b][1];
+        for (int b = 0; b < 3; ++b)
+            inside[b] += e >= bins[b][0] && e < bins[b][1];
     }
     CHECK(std::fabs(sum / count - 200) < 4 * 106.07 / std::sqrt(count));
     CHECK(squares / count == Approx(11250).epsilon(0.01));
@@ -147,7 +155,8 @@ TEST_CASE("histogram round trips", "[ions]") {
 }
 
 TEST_CASE("distributions resolved by in-plane angle", "[ions]") {
-    // Oracle: marginals: cosine law (1 + sin phi)/2 with moment -cos(phi)/2; Gaussian slopes: normal
+    // Oracle: marginals: cosine law (1 + sin phi)/2 with moment -cos(phi)/2; Gaussian slopes:
+    // normal
     //         distribution function, moment -sigma pdf.
     // Source: closed forms, derived here.
     // Tolerance: cosine by thermal ions without a drop 2e-4, by 1 deg histogram 1e-3 within 80 deg
@@ -167,13 +176,16 @@ TEST_CASE("distributions resolved by in-plane angle", "[ions]") {
     CHECK(worst(thermal.in_plane(), cosine, cosine_moment) < 2e-4);
     CHECK(worst(cosine_histogram(100, 90).in_plane(), cosine, cosine_moment, 80) < 1e-3);
     const double sigma = 0.05;
-    const auto normal = [&](double phi) { return 0.5 * std::erfc(-std::tan(phi) / sigma / std::sqrt(2)); };
+    const auto normal = [&](double phi) {
+        return 0.5 * std::erfc(-std::tan(phi) / sigma / std::sqrt(2));
+    };
     const auto normal_moment = [&](double phi) {
         return -sigma / std::sqrt(2 * pi) * std::exp(-0.5 * std::pow(std::tan(phi) / sigma, 2));
     };
     const auto gaussian = IonDistribution::gaussian(100, sigma);
     CHECK(worst(gaussian.in_plane(), normal, normal_moment) < 1e-4);
-    CHECK(worst(IonDistribution::gaussian(100, 1.02 * sigma).in_plane(), normal, normal_moment) > 2e-3);
+    CHECK(worst(IonDistribution::gaussian(100, 1.02 * sigma).in_plane(), normal, normal_moment) >
+          2e-3);
     CHECK(IonDistribution::beam(50, Vec3(1, 0, -1)).mean_rad() == Approx(-45 * degree));
 }
 

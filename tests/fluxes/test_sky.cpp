@@ -88,7 +88,7 @@ TEST_CASE("visible sky agrees with traced rays", "[sky]") {
 TEST_CASE("direct cosine flux in a trench", "[sky]") {
     // Oracle: floor average sqrt(1 + AR^2) - AR; wall at depth z (1 - z / sqrt(z^2 + w^2)) / 2.
     // Source: derived here (crossed strings).
-    // Tolerance: 1e-9 (four Gauss points a segment); 0.5 % off must fail.
+    // Tolerance: 1e-9 (three Gauss points a segment); 0.5 % off must fail.
     for (const double ratio : {1.0, 5.0, 40.0}) {
         const double w = 20, depth = ratio * w;
         const Domain domain = period(40, Sides::mirror);

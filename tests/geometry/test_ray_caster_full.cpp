@@ -98,7 +98,7 @@ TEST_CASE("full rays against brute force over explicit images", "[rays]") {
     // Oracle: every triangle of 25 explicit images tried in double.
     // Source: derived here.
     // Tolerance: single precision moves the edges of elements by about 1e-5 cell, so at most 2 rays
-    // in 6,000 may end on a neighbour; distances of equal elements agree within 1e-9 of the period.
+    // in 6,000 may end on a neighbour; the rest end within 2e-5 cell of the element's plane.
     int rays = 0, other = 0, far_off = 0, unlike = 0;
     for (const Sides sides : {Sides::mirror, Sides::periodic})
         for (std::uint64_t seed = 1; seed <= 3; ++seed) {
@@ -118,7 +118,8 @@ TEST_CASE("full rays against brute force over explicit images", "[rays]") {
                     continue;
                 if (hit.element != wanted.element)
                     ++other;
-                else if (std::fabs(hit.distance - wanted.t) > 8e-9)
+                else if (std::fabs((hit.distance - wanted.t) *
+                                   hit.direction.dot(s.normal[hit.element])) > 2e-5)
                     ++far_off;
             }
             CHECK(caster.lost() == 0);
@@ -165,12 +166,12 @@ TEST_CASE("no full ray is lost in a million", "[rays]") {
 TEST_CASE("full rays hit where geometry says", "[rays]") {
     // Oracle: straight lines in a square hole of width 40 and depth 60, worked out by hand.
     // Source: derived here.
-    // Tolerance: 1e-9 nm (planes are met in double precision).
+    // Tolerance: 1e-5 nm, single precision of the tree over 60 nm.
     Domain domain = square_period(Sides::mirror, 60);
     const Surface s =
         revolved_hole(domain, {{20 * std::sqrt(2.0), 0}, {20 * std::sqrt(2.0), -60}, {0, -60}}, 8);
     const RayCaster caster(domain, s, 2.0);
-    const auto near = [](double v) { return Approx(v).margin(1e-9); };
+    const auto near = [](double v) { return Approx(v).margin(1e-5); };
     // The hole is a regular octagon whose corners lie at multiples of 45 deg, radius 28.28.
     const double inner = 20 * std::sqrt(2.0) * std::cos(3.14159265358979323846 / 8);
 
@@ -212,6 +213,18 @@ TEST_CASE("full rays hit where geometry says", "[rays]") {
                                      wall.element);
         REQUIRE(hit.kind == Hit::Kind::surface);
         CHECK(s.normal[hit.element].z == near(1));
-        CHECK(hit.distance < 1e-6);
+        CHECK(hit.distance < 1e-4);
+    }
+    SECTION("from a slope that meets its own image at a mirror side") {
+        Surface slope;
+        slope.vertices = {{-30, -30, 0}, {30, -30, -60}, {30, 30, -60}, {-30, 30, 0}};
+        add_element(slope, {0, 1, 2, 3});
+        const RayCaster groove(domain, slope, 2.0);
+        for (const double gap : {0.0, 1e-6, 1e-4, 1e-2, 1.0}) {
+            const Hit hit = groove.trace({30 - gap, 0, -60 + gap}, {1, 0, 0}, 0);
+            REQUIRE(hit.kind == Hit::Kind::surface);
+            CHECK(hit.distance == Approx(2 * gap).margin(1e-3));
+            CHECK(hit.direction.x < 0);
+        }
     }
 }

@@ -26,25 +26,32 @@ Domain domain(Symmetry symmetry, Sides sides, int nx, int ny, double h) {
 struct Edge {
     double thickness, angle, radius;
     bool solid(double u, double z) const {
-        if (z <= 0) return true;
-        if (z > thickness) return false;
+        if (z <= 0)
+            return true;
+        if (z > thickness)
+            return false;
         const double c = std::cos(angle), s = std::sin(angle);
-        if (u < z * c / s) return false;
-        if (radius == 0) return true;
+        if (u < z * c / s)
+            return false;
+        if (radius == 0)
+            return true;
         const double cu = (radius + c * (thickness - radius)) / s, cz = thickness - radius;
         const double along_wall = (u - cu) * c + (z - cz) * s;
-        if (along_wall <= 0 || u >= cu) return true;
+        if (along_wall <= 0 || u >= cu)
+            return true;
         return std::hypot(u - cu, z - cz) <= radius;
     }
 };
 
 /// Distance by brute force: the nearest of fine samples that is on the other side.
-double brute(const std::function<bool(const Vec3&)>& solid, const Vec3& p, double reach, double step) {
+double brute(const std::function<bool(const Vec3&)>& solid, const Vec3& p, double reach,
+             double step) {
     const bool here = solid(p);
     double best = 1e9;
     for (double x = -reach; x <= reach; x += step)
         for (double z = -reach; z <= reach; z += step)
-            if (solid(p + Vec3(x, 0, z)) != here) best = std::min(best, std::hypot(x, z));
+            if (solid(p + Vec3(x, 0, z)) != here)
+                best = std::min(best, std::hypot(x, z));
     return here ? -best : best;
 }
 
@@ -65,12 +72,15 @@ TEST_CASE("mask edges of any angle and rounding against brute force", "[shape]")
             mask.openings = {{"t", Opening::Shape::trench, 14, 0, 1.5, 0}};
             const auto phi = initial_distance(d, mask);
             const Edge edge{8, angle * M_PI / 180, radius};
-            const auto solid = [&](const Vec3& p) { return edge.solid(std::fabs(p.x - 1.5) - 7, p.z); };
+            const auto solid = [&](const Vec3& p) {
+                return edge.solid(std::fabs(p.x - 1.5) - 7, p.z);
+            };
             for (int n = 0; n < 40; ++n) {
                 const Vec3 p(x(random), 0, z(random));
                 const double exact = phi(p);
                 CAPTURE(angle, radius, p);
-                if (std::fabs(exact) > 4) continue;
+                if (std::fabs(exact) > 4)
+                    continue;
                 CHECK(solid(p) == (exact < 0));
                 CHECK(exact == Approx(brute(solid, p, std::fabs(exact) + 0.3, 0.05)).margin(0.075));
             }
@@ -140,7 +150,8 @@ TEST_CASE("openings anywhere in the period", "[shape]") {
     CHECK(phi({27.5, 0, 5}) == Approx(-0.5)); // image of 12.5
     CHECK(phi({-19, 0, 12}) == Approx(2));
     // several openings: the nearest wall
-    mask.openings = {{"a", Opening::Shape::trench, 6, 0, -10, 0}, {"b", Opening::Shape::trench, 8, 0, 6, 0}};
+    mask.openings = {{"a", Opening::Shape::trench, 6, 0, -10, 0},
+                     {"b", Opening::Shape::trench, 8, 0, 6, 0}};
     CHECK(initial_distance(mirror, mask)({0.5, 0, 5}) == Approx(-1.5));
     CHECK(initial_distance(mirror, mask)({-5, 0, 5}) == Approx(-2));
 }
@@ -180,12 +191,15 @@ TEST_CASE("initial distances are cheap", "[shape][timing]") {
     MaskShape mask;
     mask.thickness = 30;
     mask.sidewall_angle_deg = 89;
-    mask.openings = {{"r", Opening::Shape::round, 30, 0, 5, 3}, {"e", Opening::Shape::elliptic, 20, 12, -25, -20}};
+    mask.openings = {{"r", Opening::Shape::round, 30, 0, 5, 3},
+                     {"e", Opening::Shape::elliptic, 20, 12, -25, -20}};
     const auto phi = initial_distance(d, mask);
     const auto start = std::chrono::steady_clock::now();
     double sum = 0;
-    for (int n = 0; n < 1000000; ++n) sum += phi(d.node(n % 100, (n / 100) % 100, n / 10000 - 20));
-    const double seconds = std::chrono::duration<double>(std::chrono::steady_clock::now() - start).count();
+    for (int n = 0; n < 1000000; ++n)
+        sum += phi(d.node(n % 100, (n / 100) % 100, n / 10000 - 20));
+    const double seconds =
+        std::chrono::duration<double>(std::chrono::steady_clock::now() - start).count();
     WARN("one million distances in " << seconds << " s");
     CHECK(std::isfinite(sum));
     CHECK(seconds < 2);

@@ -19,6 +19,24 @@ Domain extruded(int cells, double h, Sides sides = Sides::mirror) {
     return d;
 }
 
+/// Direct cosine flux at the floor element under x: (sin left + sin right) / 2 of the horizons.
+double floor_flux(const Surface& s, double x) {
+    int at = 0;
+    for (int e = 0; e < static_cast<int>(s.size()); ++e)
+        if (std::fabs(s.centre[e].x - x) < std::fabs(s.centre[at].x - x))
+            at = e;
+    const Vec3 p(x, 0, s.centre[at].z);
+    double left = 1, right = 1;
+    for (const Vec3& v : s.vertices) {
+        const double dx = v.x - p.x, dz = v.z - p.z;
+        if (dz < 0.5)
+            continue;
+        (dx < 0 ? left : right) =
+            std::min(dx < 0 ? left : right, std::fabs(dx) / std::hypot(dx, dz));
+    }
+    return 0.5 * (left + right);
+}
+
 } // namespace
 
 TEST_CASE("extruded planes are contoured to round-off", "[surface]") {
@@ -31,14 +49,19 @@ TEST_CASE("extruded planes are contoured to round-off", "[surface]") {
         const Surface s = extract_surface(make_band(d, plane, -rise, 2 + rise));
         CAPTURE(tilt);
         CHECK(largest_distance(s, plane) < 1e-12 * 60);
-        for (const Vec3& m : s.normal) CHECK((m - n).length() < 1e-11);
+        for (const Vec3& m : s.normal)
+            CHECK((m - n).length() < 1e-11);
         CHECK(projected_area_fault(s, d) < 1e-12);
         CHECK(consistent_chains(s, d));
-        for (double a : s.area) CHECK(a > 0.15 * d.spacing * (1 - 1e-9));
+        for (double a : s.area)
+            CHECK(a > 0.15 * d.spacing * (1 - 1e-9));
     }
 }
 
 TEST_CASE("extruded lip keeps its corners", "[surface]") {
+    // Oracle: the true corners; direct cosine flux at the floor's centre, (w/2) / sqrt(w^2/4 +
+    // L^2). Source: derived here. Tolerance: corner 0.05 cell; flux 1.0, 0.5, 0.25 % at 20, 40, 80
+    // cells.
     for (const int width : {20, 40, 80})
         for (const double shift : {0.0, 0.17, 0.5, 0.83}) {
             const Domain d = extruded(2 * width, 1.0);
@@ -47,10 +70,12 @@ TEST_CASE("extruded lip keeps its corners", "[surface]") {
             const auto trench = [&](const Vec3& q) {
                 const Vec3 p = q - Vec3(shift, 0, 0.37 * shift);
                 const double in = w - std::fabs(p.x); // > 0 inside the opening
-                if (p.z >= 0) return in <= 0 ? p.z : std::hypot(in, p.z);
+                if (p.z >= 0)
+                    return in <= 0 ? p.z : std::hypot(in, p.z);
                 if (in <= 0) { // solid beside the opening, or below it
                     const double up = -p.z, wall = -in;
-                    if (p.z < -depth) return -std::min(up, std::hypot(wall, p.z + depth));
+                    if (p.z < -depth)
+                        return -std::min(up, std::hypot(wall, p.z + depth));
                     return -std::min(up, wall);
                 }
                 if (p.z >= -depth) {
@@ -67,12 +92,18 @@ TEST_CASE("extruded lip keeps its corners", "[surface]") {
                 for (const double z : {0.0, -depth}) {
                     double nearest = 1e9;
                     const Vec3 corner(side * w + shift, 0, z + 0.37 * shift);
-                    for (const Vec3& p : s.vertices) nearest = std::min(nearest, (p - corner).length());
+                    for (const Vec3& p : s.vertices)
+                        nearest = std::min(nearest, (p - corner).length());
                     CHECK(nearest < 0.05);
                 }
             double worst = 0;
-            for (std::size_t e = 0; e < s.size(); ++e) worst = std::max(worst, std::fabs(trench(s.centre[e])));
+            for (std::size_t e = 0; e < s.size(); ++e)
+                worst = std::max(worst, std::fabs(trench(s.centre[e])));
             CHECK(worst < 1e-9);
+            CHECK(std::fabs(floor_flux(s, shift) / (w / std::hypot(w, depth)) - 1) <
+                  (width == 20   ? 0.01
+                   : width == 40 ? 0.005
+                                 : 0.0025));
         }
 }
 
@@ -116,7 +147,8 @@ TEST_CASE("extruded surfaces cover one period whatever the sides", "[surface]") 
     for (const Sides sides : {Sides::mirror, Sides::periodic})
         for (int seed = 0; seed < 40; ++seed) {
             const Domain d = extruded(48, 0.5, sides);
-            const double step = sides == Sides::mirror ? M_PI / d.width_x() : 2 * M_PI / d.width_x();
+            const double step =
+                sides == Sides::mirror ? M_PI / d.width_x() : 2 * M_PI / d.width_x();
             const double a = 2.0 + 0.05 * seed, b = 1.3 * std::sin(seed), phase = 0.37 * seed;
             // folded back over itself: overhangs cross the sides
             const auto shape = [&](const Vec3& p) {
@@ -130,10 +162,12 @@ TEST_CASE("extruded surfaces cover one period whatever the sides", "[surface]") 
             CHECK(consistent_chains(s, d));
             double sum = 0;
             for (std::size_t e = 0; e < s.size(); ++e)
-                if (s.chain[e] == 0) sum += s.area[e] * s.normal[e].z;
+                if (s.chain[e] == 0)
+                    sum += s.area[e] * s.normal[e].z;
             CHECK(std::fabs(sum / d.width_x() - 1) < 1e-9);
             for (std::size_t e = 0; e < s.size(); ++e)
-                CHECK(shape(s.centre[e] + s.normal[e] * 0.25) > shape(s.centre[e] - s.normal[e] * 0.25));
+                CHECK(shape(s.centre[e] + s.normal[e] * 0.25) >
+                      shape(s.centre[e] - s.normal[e] * 0.25));
         }
 }
 
@@ -143,7 +177,10 @@ TEST_CASE("chain 0 is the open one, further chains are the rest", "[surface]") {
         const auto shape = [&](const Vec3& p) { // void below, drop above, a drop on the left side
             const double hole = 6.0 - std::hypot(p.x - 8, p.z + 15);
             const double drop = std::hypot(p.x + 5, p.z - 12) - 5.0;
-            const double edge = std::hypot(std::min(p.x + 30, 30 - p.x + (sides == Sides::mirror ? 99 : 0)), p.z - 20) - 4.0;
+            const double edge =
+                std::hypot(std::min(p.x + 30, 30 - p.x + (sides == Sides::mirror ? 99 : 0)),
+                           p.z - 20) -
+                4.0;
             return std::min({std::max(p.z, hole), drop, edge});
         };
         const Surface s = extract_surface(make_band(d, shape, -22, 26));
@@ -161,7 +198,8 @@ TEST_CASE("wedges and pillars keep their tips", "[surface]") {
             for (const bool ridge : {true, false}) {
                 const Domain d = extruded(40, 1.0);
                 const double a = half_angle * M_PI / 180, b = lean * M_PI / 180;
-                const Vec3 n1(std::cos(a - b), 0, std::sin(a - b)), n2(-std::cos(a + b), 0, std::sin(a + b));
+                const Vec3 n1(std::cos(a - b), 0, std::sin(a - b)),
+                    n2(-std::cos(a + b), 0, std::sin(a + b));
                 const Vec3 tip(0.31, 0, 0.43);
                 const auto wedge = [&](const Vec3& q) {
                     const Vec3 p = ridge ? q - tip : (q - tip) * -1.0;
@@ -169,12 +207,14 @@ TEST_CASE("wedges and pillars keep their tips", "[surface]") {
                     const double d1 = n1.dot(p), d2 = n2.dot(p);
                     const Vec3 t1(-n1.z, 0, n1.x), t2(-n2.z, 0, n2.x);
                     double dist = std::max(d1, d2);
-                    if (t1.dot(p) > 0 && t2.dot(p) < 0) dist = p.length();
+                    if (t1.dot(p) > 0 && t2.dot(p) < 0)
+                        dist = p.length();
                     return ridge ? dist : -dist;
                 };
                 const Surface s = extract_surface(make_band(d, wedge, -400, 400));
                 double nearest = 1e9;
-                for (const Vec3& p : s.vertices) nearest = std::min(nearest, (p - tip).length());
+                for (const Vec3& p : s.vertices)
+                    nearest = std::min(nearest, (p - tip).length());
                 CAPTURE(half_angle, lean, ridge);
                 CHECK(nearest < 0.05);
                 CHECK(consistent_chains(s, d));

@@ -29,14 +29,16 @@ inline geometry::Band make_band(const geometry::Domain& domain,
         for (int j = 0; j < ny; ++j)
             for (int i = 0; i < nx; ++i) {
                 const double phi = distance(domain.node(i, j, k));
-                if (std::fabs(phi) > half_width * h) continue;
+                if (std::fabs(phi) > half_width * h)
+                    continue;
                 slot(i, j, k) = static_cast<int>(band.size());
                 band.cells.push_back({i, j, k});
                 band.phi.push_back(phi);
             }
     const bool mirror = domain.sides == geometry::Sides::mirror;
     const auto beyond = [&](int i, int n) {
-        if (i >= 0 && i < n) return i;
+        if (i >= 0 && i < n)
+            return i;
         return mirror ? (i < 0 ? 0 : n - 1) : (i + n) % n;
     };
     for (const auto& c : band.cells) {
@@ -44,9 +46,9 @@ inline geometry::Band make_band(const geometry::Domain& domain,
             return k < k_low || k > k_high ? -1 : slot(beyond(i, nx), beyond(j, ny), k);
         };
         const bool flat = domain.extruded();
-        band.neighbour.push_back({at(c.i - 1, c.j, c.k), at(c.i + 1, c.j, c.k),
-                                  flat ? -1 : at(c.i, c.j - 1, c.k), flat ? -1 : at(c.i, c.j + 1, c.k),
-                                  at(c.i, c.j, c.k - 1), at(c.i, c.j, c.k + 1)});
+        band.neighbour.push_back(
+            {at(c.i - 1, c.j, c.k), at(c.i + 1, c.j, c.k), flat ? -1 : at(c.i, c.j - 1, c.k),
+             flat ? -1 : at(c.i, c.j + 1, c.k), at(c.i, c.j, c.k - 1), at(c.i, c.j, c.k + 1)});
     }
     return band;
 }

@@ -157,7 +157,8 @@ TEST_CASE("the narrower of two trenches lags when neutrals limit", "[validation]
 
 // Oracle: a tapered mask that erodes at vertical rate m opens its bottom by m t / tan(angle) a side.
 // Source: geometry, derived here.
-// Tolerance: 15 % of the opening and monotone.
+// Tolerance: 15 % of the opening or half a cell a side (the scheme's smearing of a contact), and
+// monotone.
 TEST_CASE("faster mask erosion opens the CD", "[validation][trends]") {
     double before = 0;
     for (const double yield : {0.0, 0.2, 0.5}) {
@@ -176,7 +177,7 @@ TEST_CASE("faster mask erosion opens the CD", "[validation][trends]") {
         const double expected =
             2 * (yield * 60 / 50 * 60) / std::tan(80 * 3.14159265358979 / 180);
         CAPTURE(yield, opened, expected);
-        CHECK(opened == Approx(expected).epsilon(0.15).margin(0.4));
+        CHECK(opened == Approx(expected).epsilon(0.15).margin(2 * 0.5));
         CHECK(opened >= before - 0.05);
         before = opened;
     }

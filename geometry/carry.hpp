@@ -1,0 +1,20 @@
+// SPDX-License-Identifier: Apache-2.0
+// Private to geometry: the two forms of carry_fields.
+#pragma once
+
+#include "geometry/grown_films.hpp"
+
+namespace rille::geometry {
+
+struct CarryTask {
+    const Surface& from;
+    const Surface& to;
+    const std::vector<double>& moved;
+    double period_x, period_y; ///< [nm] 0 if mirrored
+    const std::vector<SurfaceField*>& fields;
+};
+
+void carry_extruded(const CarryTask&);
+void carry_full(const CarryTask&);
+
+} // namespace rille::geometry

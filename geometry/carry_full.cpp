@@ -1,0 +1,183 @@
+// SPDX-License-Identifier: Apache-2.0
+#include "geometry/carry.hpp"
+#include "geometry/element_bins.hpp"
+#include "geometry/ranges.hpp"
+
+#include <algorithm>
+#include <cmath>
+
+namespace rille::geometry {
+
+namespace {
+
+constexpr std::size_t grain = 2048;
+constexpr double narrow = 1.6; ///< [mean element sizes] values are taken from within
+constexpr double wide = 3.0;   ///< [mean element sizes] corrections are spread over
+
+/// New values are weighted means of the old ones that moved next to them. What a per-area amount
+/// then lacks or has too much is spread over the neighbourhood in proportion to what lies there, so
+/// that the integral is exact and nothing turns negative.
+class FullCarrier {
+public:
+    explicit FullCarrier(const CarryTask& task)
+        : task_(task), from_(task.from), to_(task.to), size_(mean_size(task.to)), foot_(feet(task)),
+          old_bins_(foot_, size_, task.period_x, task.period_y),
+          new_bins_(task.to.centre, size_, task.period_x, task.period_y) {
+        weigh();
+        measure_shares();
+    }
+
+    void run() {
+        for (SurfaceField* f : task_.fields) {
+            std::vector<double> now = means(f->value);
+            if (f->carry == Carry::per_area)
+                conserve(f->value, now);
+            f->value = std::move(now);
+        }
+    }
+
+private:
+    static double mean_size(const Surface& s) {
+        double sum = 0;
+        for (double a : s.area)
+            sum += a;
+        return std::sqrt(sum / s.size());
+    }
+    static std::vector<Vec3> feet(const CarryTask& task) {
+        std::vector<Vec3> out(task.from.size());
+        for (std::size_t e = 0; e < out.size(); ++e)
+            out[e] = task.moved[e] == 0 ? task.from.centre[e]
+                                        : task.from.centre[e] - task.from.normal[e] * task.moved[e];
+        return out;
+    }
+
+    double weight(int e, int j, const Vec3& d, double radius) const {
+        const double facing = from_.normal[e].dot(to_.normal[j]);
+        if (facing <= 0)
+            return 0;
+        const double t = 1 - d.length() / (radius * size_);
+        return t <= 0 ? 0 : facing * t * t;
+    }
+
+    /// Sum of weights of each new element; `single_` where one old element alone counts.
+    void weigh() {
+        total_.assign(to_.size(), 0);
+        single_.assign(to_.size(), -1);
+        over_ranges(to_.size(), grain, [&](std::size_t first, std::size_t last) {
+            for (std::size_t j = first; j < last; ++j) {
+                double sum = 0;
+                int same = -1;
+                old_bins_.near(to_.centre[j], narrow * size_, [&](int e, const Vec3& d) {
+                    if (d == Vec3(0, 0, 0) && from_.normal[e] == to_.normal[j])
+                        same = e;
+                    sum += weight(e, static_cast<int>(j), d, narrow);
+                });
+                total_[j] = sum;
+                if (same >= 0)
+                    single_[j] = same;
+                else if (!(sum > 1e-9))
+                    single_[j] = old_bins_.nearest(to_.centre[j]);
+            }
+        });
+    }
+
+    /// New area that takes its value from each old element.
+    void measure_shares() {
+        share_.assign(from_.size(), 0);
+        over_ranges(from_.size(), grain, [&](std::size_t first, std::size_t last) {
+            for (std::size_t e = first; e < last; ++e)
+                new_bins_.near(foot_[e], narrow * size_, [&](int j, const Vec3& d) {
+                    if (single_[j] < 0)
+                        share_[e] +=
+                            to_.area[j] * weight(static_cast<int>(e), j, d, narrow) / total_[j];
+                });
+        });
+        for (std::size_t j = 0; j < to_.size(); ++j)
+            if (single_[j] >= 0)
+                share_[single_[j]] += to_.area[j];
+    }
+
+    std::vector<double> means(const std::vector<double>& old) const {
+        std::vector<double> now(to_.size());
+        over_ranges(to_.size(), grain, [&](std::size_t first, std::size_t last) {
+            for (std::size_t j = first; j < last; ++j) {
+                if (single_[j] >= 0) {
+                    now[j] = old[single_[j]];
+                    continue;
+                }
+                double sum = 0;
+                old_bins_.near(to_.centre[j], narrow * size_, [&](int e, const Vec3& d) {
+                    sum += weight(e, static_cast<int>(j), d, narrow) * old[e];
+                });
+                now[j] = sum / total_[j];
+            }
+        });
+        return now;
+    }
+
+    void conserve(const std::vector<double>& old, std::vector<double>& now) const {
+        std::vector<double> excess(from_.size()), scale(from_.size(), 0);
+        over_ranges(from_.size(), grain, [&](std::size_t first, std::size_t last) {
+            for (std::size_t e = first; e < last; ++e) {
+                excess[e] = old[e] * (from_.area[e] - share_[e]);
+                if (excess[e] == 0)
+                    continue;
+                double sum = 0;
+                new_bins_.near(foot_[e], wide * size_, [&](int j, const Vec3& d) {
+                    sum += weight(static_cast<int>(e), j, d, wide) * to_.area[j] * now[j];
+                });
+                scale[e] = sum > 0 ? excess[e] / sum : 0;
+            }
+        });
+        std::vector<double> next = now;
+        over_ranges(to_.size(), grain, [&](std::size_t first, std::size_t last) {
+            for (std::size_t j = first; j < last; ++j) {
+                double sum = 0;
+                old_bins_.near(to_.centre[j], wide * size_, [&](int e, const Vec3& d) {
+                    sum += scale[e] * weight(e, static_cast<int>(j), d, wide);
+                });
+                if (sum != 0)
+                    next[j] = now[j] + sum * now[j];
+            }
+        });
+        for (std::size_t e = 0; e < from_.size(); ++e) // nothing near to share it with
+            if (excess[e] != 0 && scale[e] == 0) {
+                const int j = new_bins_.nearest(foot_[e]);
+                next[j] += excess[e] / to_.area[j];
+            }
+        keep_positive(old, next);
+        now = std::move(next);
+    }
+
+    /// Overshoots below zero are rare; lifting them is paid for by all in proportion.
+    void keep_positive(const std::vector<double>& old, std::vector<double>& now) const {
+        if (std::none_of(now.begin(), now.end(), [](double v) { return v < 0; }))
+            return;
+        if (std::any_of(old.begin(), old.end(), [](double v) { return v < 0; }))
+            return;
+        double before = 0, after = 0;
+        for (std::size_t e = 0; e < old.size(); ++e)
+            before += old[e] * from_.area[e];
+        for (std::size_t j = 0; j < now.size(); ++j)
+            after += (now[j] = std::max(now[j], 0.0)) * to_.area[j];
+        if (after > 0)
+            for (double& v : now)
+                v *= before / after;
+    }
+
+    const CarryTask& task_;
+    const Surface &from_, &to_;
+    double size_;
+    std::vector<Vec3> foot_;
+    ElementBins old_bins_, new_bins_;
+    std::vector<double> total_, share_;
+    std::vector<int> single_;
+};
+
+} // namespace
+
+void carry_full(const CarryTask& task) {
+    FullCarrier(task).run();
+}
+
+} // namespace rille::geometry

@@ -1,0 +1,209 @@
+// SPDX-License-Identifier: Apache-2.0
+#include "geometry/check.hpp"
+#include "geometry/segment_caster.hpp"
+
+#include <algorithm>
+#include <cmath>
+#include <limits>
+
+namespace rille::geometry {
+
+void SegmentCaster::choose_grid(const Surface& surface) {
+    double low = std::numeric_limits<double>::infinity(), high = -low, length = 0;
+    for (const auto& e : ends_) {
+        low = std::min({low, e[1], e[3]});
+        high = std::max({high, e[1], e[3]});
+        length += std::hypot(e[2] - e[0], e[3] - e[1]);
+    }
+    RILLE_CHECK(z_open_ >= high, "the source plane lies below the top of the surface");
+    const double n = static_cast<double>(surface.size());
+    // About four cells a segment: a run of seven fits what crosses a cell of a trench.
+    const double area = width_ * (high - low + 1e-3 * length);
+    const double size = std::max(1.5 * length / n, std::sqrt(area / (4 * n)));
+    nx_ = std::max(1, static_cast<int>(std::lround(width_ / size)));
+    cell_x_ = width_ / nx_;
+    // The grid ends exactly at the top: a ray that rises above it is free.
+    z_min_ = low - 0.25 * size;
+    z_top_ = high;
+    nz_ = std::max(1, static_cast<int>(std::ceil((high - z_min_) / size)));
+    cell_z_ = (high - z_min_) / nz_;
+    per_cell_x_ = 1.0 / cell_x_;
+    per_cell_z_ = 1.0 / cell_z_;
+}
+
+void SegmentCaster::fill_cells(const Surface& surface) {
+    // Cells are padded so that round-off in a ray's cell never hides a segment from it.
+    const double pad = 1e-6, half = 0.5 + pad;
+    std::vector<std::vector<int>> lists(static_cast<std::size_t>(nx_) * nz_);
+    const auto column = [&](double x) {
+        return std::clamp(static_cast<int>(std::floor(x)), 0, nx_ - 1);
+    };
+    const auto row = [&](double z) {
+        return std::clamp(static_cast<int>(std::floor(z)), 0, nz_ - 1);
+    };
+    for (int e = 0; e < static_cast<int>(surface.size()); ++e) {
+        const double ax = (ends_[e][0] - x_min_) * per_cell_x_;
+        const double az = (ends_[e][1] - z_min_) * per_cell_z_;
+        const double bx = (ends_[e][2] - x_min_) * per_cell_x_;
+        const double bz = (ends_[e][3] - z_min_) * per_cell_z_;
+        const double sx = bx - ax, sz = bz - az;
+        const double reach = half * (std::fabs(sx) + std::fabs(sz));
+        const int last_x = column(std::max(ax, bx) + pad), last_z = row(std::max(az, bz) + pad);
+        for (int iz = row(std::min(az, bz) - pad); iz <= last_z; ++iz)
+            for (int ix = column(std::min(ax, bx) - pad); ix <= last_x; ++ix) {
+                const double off = sx * (iz + 0.5 - az) - sz * (ix + 0.5 - ax);
+                if (std::fabs(off) <= reach)
+                    lists[static_cast<std::size_t>(iz) * nx_ + ix].push_back(e);
+            }
+    }
+    room_of_.assign(lists.size(), -1);
+    for (int c = 0; c < nx_ * nz_; ++c) {
+        if (lists[c].empty())
+            continue;
+        Room own = room({c % nx_, c % nx_, c / nx_, c / nx_});
+        own.first = static_cast<int>(runs_.size());
+        add_runs(lists[c], surface);
+        own.end = static_cast<int>(runs_.size());
+        room_of_[c] = static_cast<int>(rooms_.size());
+        rooms_.push_back(own);
+    }
+}
+
+SegmentCaster::Room SegmentCaster::room(const Rectangle& r) const {
+    return {x_min_ + r.x0 * cell_x_,
+            x_min_ + (r.x1 + 1) * cell_x_,
+            z_min_ + r.z0 * cell_z_,
+            z_min_ + (r.z1 + 1) * cell_z_,
+            r,
+            0,
+            0};
+}
+
+bool SegmentCaster::occupied(int cell) const {
+    const int r = room_of_[cell];
+    return r >= 0 && rooms_[r].end > rooms_[r].first;
+}
+
+/// Splits a cell's elements, in ascending order, into runs that share vertices.
+void SegmentCaster::add_runs(const std::vector<int>& elements, const Surface& surface) {
+    for (std::size_t i = 0; i < elements.size();) {
+        std::size_t end = i + 1;
+        while (end < elements.size() && end - i < 7 && elements[end] == elements[end - 1] + 1 &&
+               surface.corners[elements[end]][0] == surface.corners[elements[end - 1]][1])
+            ++end;
+        runs_.push_back(make_run(elements[i], static_cast<int>(end - i)));
+        i = end;
+    }
+}
+
+SegmentCaster::Run SegmentCaster::make_run(int first, int count) const {
+    Run run;
+    run.element = first;
+    double nx = 0, nz = 0;
+    for (int k = 0; k < 8; ++k) {
+        const auto& e = ends_[first + std::min(k, count - 1)];
+        run.x[k] = k < count ? e[0] : e[2];
+        run.z[k] = k < count ? e[1] : e[3];
+        if (k >= count)
+            continue;
+        nx -= e[3] - e[1];
+        nz += e[2] - e[0];
+    }
+    // Extreme normals to either side of the mean one; a run that bends too far is never passed
+    // over.
+    double low = 0, high = 0;
+    for (int k = 0; k < count; ++k) {
+        const auto& e = ends_[first + k];
+        const double px = -(e[3] - e[1]), pz = e[2] - e[0];
+        const double angle = std::atan2(nx * pz - nz * px, nx * px + nz * pz);
+        low = std::min(low, angle);
+        high = std::max(high, angle);
+    }
+    const double length = std::sqrt(nx * nx + nz * nz);
+    if (length == 0 || high > 1.5 || low < -1.5 || high - low > 3) {
+        run.normal_first = {1, 0};
+        run.normal_last = {-1, 0};
+        return run;
+    }
+    const double mean = std::atan2(nz, nx);
+    run.normal_first = {std::cos(mean + low), std::sin(mean + low)};
+    run.normal_last = {std::cos(mean + high), std::sin(mean + high)};
+    return run;
+}
+
+/// Sum of occupied cells over [0, ix) x [0, iz), row length nx + 1.
+std::vector<int> SegmentCaster::occupancy_sums() const {
+    const int stride = nx_ + 1;
+    std::vector<int> sums(static_cast<std::size_t>(stride) * (nz_ + 1), 0);
+    for (int iz = 0; iz < nz_; ++iz)
+        for (int ix = 0; ix < nx_; ++ix) {
+            const int c = iz * nx_ + ix;
+            sums[(iz + 1) * stride + ix + 1] = occupied(c) + sums[iz * stride + ix + 1] +
+                                               sums[(iz + 1) * stride + ix] -
+                                               sums[iz * stride + ix];
+        }
+    return sums;
+}
+
+/// Empty cells, those farthest from any segment first (chessboard distance, two sweeps).
+std::vector<int> SegmentCaster::cells_by_clearance() const {
+    std::vector<int> clear(static_cast<std::size_t>(nx_) * nz_);
+    const auto at = [&](int ix, int iz) {
+        ix = std::clamp(ix, 0, nx_ - 1);
+        return iz < 0 || iz >= nz_ ? nx_ + nz_ : clear[iz * nx_ + ix];
+    };
+    for (int c = 0; c < nx_ * nz_; ++c)
+        clear[c] = occupied(c) ? 0 : nx_ + nz_;
+    for (const int way : {1, -1})
+        for (int n = 0; n < nx_ * nz_; ++n) {
+            const int c = way > 0 ? n : nx_ * nz_ - 1 - n, ix = c % nx_, iz = c / nx_;
+            clear[c] = std::min(clear[c], 1 + std::min({at(ix - way, iz), at(ix - 1, iz - way),
+                                                        at(ix, iz - way), at(ix + 1, iz - way)}));
+        }
+    std::vector<int> order;
+    for (int c = 0; c < nx_ * nz_; ++c)
+        if (clear[c] > 0)
+            order.push_back(c);
+    std::stable_sort(order.begin(), order.end(), [&](int a, int b) { return clear[a] > clear[b]; });
+    return order;
+}
+
+SegmentCaster::Rectangle SegmentCaster::grow(int ix, int iz, const std::vector<int>& sums) const {
+    const int stride = nx_ + 1;
+    Rectangle r{ix, ix, iz, iz};
+    const auto empty = [&](int x0, int x1, int z0, int z1) {
+        if (x0 < 0 || x1 >= nx_ || z0 < 0 || z1 >= nz_)
+            return false;
+        return sums[(z1 + 1) * stride + x1 + 1] - sums[z0 * stride + x1 + 1] -
+                   sums[(z1 + 1) * stride + x0] + sums[z0 * stride + x0] ==
+               0;
+    };
+    for (bool grew = true; grew;) {
+        grew = false;
+        if (empty(r.x0 - 1, r.x0 - 1, r.z0, r.z1))
+            --r.x0, grew = true;
+        if (empty(r.x1 + 1, r.x1 + 1, r.z0, r.z1))
+            ++r.x1, grew = true;
+        if (empty(r.x0, r.x1, r.z0 - 1, r.z0 - 1))
+            --r.z0, grew = true;
+        if (empty(r.x0, r.x1, r.z1 + 1, r.z1 + 1))
+            ++r.z1, grew = true;
+    }
+    return r;
+}
+
+void SegmentCaster::find_rectangles() {
+    const std::vector<int> sums = occupancy_sums();
+    for (const int c : cells_by_clearance()) {
+        if (room_of_[c] >= 0)
+            continue;
+        const Rectangle r = grow(c % nx_, c / nx_, sums);
+        for (int iz = r.z0; iz <= r.z1; ++iz)
+            for (int ix = r.x0; ix <= r.x1; ++ix)
+                if (room_of_[iz * nx_ + ix] < 0)
+                    room_of_[iz * nx_ + ix] = static_cast<int>(rooms_.size());
+        rooms_.push_back(room(r));
+    }
+}
+
+} // namespace rille::geometry

@@ -1,0 +1,249 @@
+// SPDX-License-Identifier: Apache-2.0
+// One step of the front against OpenVDB's LevelSetAdvection (SECOND_BIAS, TVD_RK2) with the same
+// front and the same displacement, both on all cores; and the error of both after one turn of a
+// notched disk (Zalesak, J. Comput. Phys. 31 (1979) 335).
+#include "geometry/band.hpp"
+#include "geometry/front.hpp"
+#include "tests/bench/timing.hpp"
+
+#include <nlohmann/json.hpp>
+#include <openvdb/openvdb.h>
+#include <openvdb/tools/Interpolation.h>
+#include <openvdb/tools/LevelSetAdvect.h>
+#include <openvdb/tools/LevelSetSphere.h>
+#include <openvdb/tools/SignedFloodFill.h>
+
+#include <cmath>
+#include <functional>
+#include <iostream>
+#include <limits>
+
+using namespace rille::bench;
+using namespace rille::geometry;
+
+namespace {
+
+const double pi = 3.14159265358979323846;
+
+/// Rate of the shrinking sphere by the cosine of the angle between normal and z.
+double shrink_rate(double cosine) {
+    return 1 + 0.1 * cosine * cosine;
+}
+
+/// A velocity field as LevelSetAdvection wants it.
+struct Field {
+    using VectorType = openvdb::Vec3s;
+    using ValueType = float;
+    enum class Motion { shrink, spin } motion = Motion::shrink;
+    openvdb::math::Transform::ConstPtr transform_ptr =
+        openvdb::math::Transform::createLinearTransform(1.0);
+
+    const openvdb::math::Transform& transform() const { return *transform_ptr; }
+    VectorType operator()(const openvdb::Vec3d& p, float) const {
+        if (motion == Motion::spin)
+            return {float(p.z()), 0, float(-p.x())};
+        const openvdb::Vec3d v = p * (-shrink_rate(p.z() / p.length()) / p.length());
+        return {float(v.x()), float(v.y()), float(v.z())};
+    }
+    VectorType operator()(const openvdb::Coord& c, float t) const {
+        return (*this)(transform_ptr->indexToWorld(c), t);
+    }
+};
+
+using Advection = openvdb::tools::LevelSetAdvection<openvdb::FloatGrid, Field>;
+
+void set_scheme(Advection& a) {
+    a.setSpatialScheme(openvdb::math::SECOND_BIAS);
+    a.setTemporalScheme(openvdb::math::TVD_RK2);
+    a.setTrackerSpatialScheme(openvdb::math::SECOND_BIAS);
+    a.setTrackerTemporalScheme(openvdb::math::TVD_RK2);
+}
+
+/// A solid of one material without end.
+Stack one_material() {
+    return Stack({Film{"solid", 0, 1e9, -std::numeric_limits<double>::infinity()}});
+}
+
+/// rate(element, angle) on a grid of angles, the same for the solid and for what grows on it.
+NormalRates tabulate(const Surface& s, double low, double high, int angles,
+                     const std::function<double(int, double)>& rate) {
+    NormalRates r;
+    for (int a = 0; a <= angles; ++a)
+        r.angles.push_back(low + (high - low) * a / angles);
+    r.first_row.push_back(0);
+    for (int e = 0; e < static_cast<int>(s.size()); ++e) {
+        for (int material = 0; material < 2; ++material) {
+            r.material.push_back(material);
+            for (const double angle : r.angles)
+                r.table.push_back(rate(e, angle));
+        }
+        r.first_row.push_back(static_cast<int>(r.material.size()));
+    }
+    return r;
+}
+
+GrownFilms no_film(const Surface& s) {
+    return {{1}, {std::vector<double>(s.size(), 0.0)}};
+}
+
+nlohmann::json sphere() {
+    // 105 cells of radius: 200,000 elements. Rate 1 + 0.1 cos^2 of the angle to the vertical.
+    const double radius = 105, step = 0.45;
+    Domain domain;
+    domain.symmetry = Symmetry::full;
+    domain.cells_x = domain.cells_y = 230;
+    Front front(
+        domain, [&](const Vec3& p) { return p.length() - radius; }, -radius, radius);
+
+    openvdb::FloatGrid::Ptr grid =
+        openvdb::tools::createLevelSetSphere<openvdb::FloatGrid>(radius, {0, 0, 0}, 1.0);
+    Advection advection(*grid, Field());
+    set_scheme(advection);
+
+    std::vector<double> ours, with_contour, theirs, ratio, ratio_cpu, ratio_contour;
+    const Stack stack = one_material();
+    std::size_t elements = 0;
+    int sub_steps = 0;
+    for (int n = 0; n < 5; ++n) {
+        Surface surface;
+        const double contour = seconds([&] { surface = extract_surface(front); });
+        const NormalRates rates = tabulate(
+            surface, 0, pi, 90, [&](int, double angle) { return shrink_rate(std::cos(angle)); });
+        GrownFilms films = no_film(surface);
+        const std::vector<int> growth(surface.size(), 0);
+        AdvanceLimits limits;
+        limits.time = step;
+        double a_cpu = 0, b_cpu = 0;
+        const double a = seconds([&] {
+            a_cpu = process_seconds([&] {
+                sub_steps =
+                    advance(front, surface, rates, stack, films, growth, -1e9, limits).sub_steps;
+            });
+        });
+        const double b =
+            seconds([&] { b_cpu = process_seconds([&] { advection.advect(0, step); }); });
+        elements = surface.size();
+        if (n == 0)
+            continue; // the first pair warms up
+        ours.push_back(a);
+        with_contour.push_back(a + contour);
+        theirs.push_back(b);
+        ratio.push_back(b / a);
+        ratio_cpu.push_back(b_cpu / a_cpu);
+        ratio_contour.push_back(b / (a + contour));
+    }
+    return {{"bench", "advance"},
+            {"ratio", median(ratio)},
+            {"ratio_cpu_time", median(ratio_cpu)},
+            {"ratio_with_contouring", median(ratio_contour)},
+            {"ours_s", median(ours)},
+            {"ours_with_contouring_s", median(with_contour)},
+            {"openvdb_s", median(theirs)},
+            {"elements", elements},
+            {"sub_steps", sub_steps},
+            {"displacement_cells", step * 1.1}};
+}
+
+/// Disk of radius 15 round (0, 25) with a notch 5 wide that ends 10 above its centre; side 100.
+double notched_disk(const Vec3& p) {
+    const double r = 15, half = 2.5, top = 10, x = std::fabs(p.x), z = p.z - 25;
+    const double rim = -std::sqrt(r * r - half * half); // where the notch meets the circle
+    const bool inside = std::hypot(x, z) < r && !(x < half && z < top);
+    double d = std::hypot(x - half, z - std::clamp(z, rim, top)); // side of the notch
+    d = std::min(d, std::hypot(x - std::min(x, half), z - top));  // its end
+    const double to_circle = std::hypot(x, z);
+    const bool facing_arc = !(z < 0 && x * -rim < -z * half); // not through the mouth
+    d = std::min(d, facing_arc ? std::fabs(to_circle - r) : std::hypot(x - half, z - rim));
+    return inside ? -d : d;
+}
+
+/// Symmetric difference with the exact disk over its perimeter, and the change of area.
+nlohmann::json error_of(const std::function<double(const Vec3&)>& phi) {
+    const int samples = 800;
+    double wrong = 0, area = 0, exact = 0;
+    for (int j = 0; j < samples; ++j)
+        for (int i = 0; i < samples; ++i) {
+            const Vec3 p(-20 + 40 * (i + 0.5) / samples, 0, 5 + 40 * (j + 0.5) / samples);
+            const bool a = phi(p) < 0, b = notched_disk(p) < 0;
+            wrong += a != b;
+            area += a;
+            exact += b;
+        }
+    const double cell = 40.0 / samples;
+    const double perimeter =
+        2 * (15 * (pi - std::asin(2.5 / 15)) + 10 + std::sqrt(225 - 6.25) + 2.5);
+    return {{"l1", wrong * cell * cell / perimeter},
+            {"area_change_percent", 100 * (area / exact - 1)}};
+}
+
+/// Spin by one turn about y in steps that move the rim by at most half a cell.
+nlohmann::json disk(int cells) {
+    const double h = 100.0 / cells;
+    const int steps = static_cast<int>(std::ceil(2 * pi * 42 / (0.5 * h)));
+    const double dt = 2 * pi / steps; // angular speed 1
+    const auto velocity = [](const Vec3& p) { return Vec3(p.z, 0, -p.x); };
+
+    Domain domain;
+    domain.spacing = h;
+    domain.cells_x = cells;
+    Front front(domain, notched_disk, 5, 45);
+    const Stack stack = one_material();
+    const double ours = seconds([&] {
+        for (int n = 0; n < steps; ++n) {
+            double left = dt;
+            while (left > 1e-12 * dt) {
+                const Surface surface = extract_surface(front);
+                const NormalRates rates = tabulate(surface, -pi, pi, 180, [&](int e, double psi) {
+                    const Vec3 v = velocity(surface.centre[e]);
+                    return -(v.x * std::sin(psi) + v.z * std::cos(psi));
+                });
+                GrownFilms films = no_film(surface);
+                AdvanceLimits limits;
+                limits.time = left;
+                left -= advance(front, surface, rates, stack, films,
+                                std::vector<int>(surface.size(), 0), -1e9, limits)
+                            .time;
+            }
+        }
+    });
+    nlohmann::json result{{"cells", cells},
+                          {"ours", error_of([&](const Vec3& p) { return front.distance(p); })}};
+    result["ours"]["seconds"] = ours;
+
+    // The same disk as a cylinder of 12 cells, read in its middle.
+    openvdb::FloatGrid::Ptr grid = openvdb::createLevelSet<openvdb::FloatGrid>(h, 3);
+    auto write = grid->getAccessor();
+    for (int k = -cells / 2; k <= cells / 2; ++k)
+        for (int i = -cells / 2; i <= cells / 2; ++i)
+            for (int j = -10; j <= 10; ++j) {
+                const double side = (std::abs(j) - 6) * h, flat = notched_disk({i * h, 0, k * h});
+                const double d =
+                    side > 0 && flat > 0 ? std::hypot(side, flat) : std::max(side, flat);
+                if (std::fabs(d) < 3 * h)
+                    write.setValue({i, j, k}, float(d));
+            }
+    openvdb::tools::signedFloodFill(grid->tree());
+    Field field;
+    field.motion = Field::Motion::spin;
+    field.transform_ptr = grid->constTransformPtr();
+    Advection advection(*grid, field);
+    set_scheme(advection);
+    const double theirs = seconds([&] {
+        for (int n = 0; n < steps; ++n)
+            advection.advect(n * dt, (n + 1) * dt);
+    });
+    const openvdb::tools::GridSampler<openvdb::FloatGrid, openvdb::tools::BoxSampler> sample(*grid);
+    result["openvdb"] = error_of([&](const Vec3& p) { return sample.wsSample({p.x, p.y, p.z}); });
+    result["openvdb"]["seconds"] = theirs;
+    return result;
+}
+
+} // namespace
+
+int main() {
+    openvdb::initialize();
+    std::cout << sphere().dump() << std::endl;
+    nlohmann::json turned = disk(100);
+    turned["bench"] = "advance_notched_disk";
+    std::cout << turned.dump() << std::endl;
+}
