@@ -17,25 +17,25 @@ namespace rille::engine {
 /// Everything that a case file says, checked and in inside units (nm, s, eV, K, nm^-2 s^-1).
 struct PlasmaNeutral {
     std::string name;
-    double flux = 0;          ///< [nm^-2 s^-1]
+    double flux = 0; ///< [nm^-2 s^-1]
     double temperature_k = 300;
 };
 struct PlasmaIon {
-    std::string name;         ///< as in configs/ions.yaml, "Cl2+"
+    std::string name; ///< as in configs/ions.yaml, "Cl2+"
     double mass_amu = 0;
-    double share = 0;         ///< of the ion flux, sums to 1 over the list
+    double share = 0; ///< of the ion flux, sums to 1 over the list
 };
 struct Plasma {
     std::string name;
     double electron_temperature_ev = 3;
-    double ion_flux = 0;                    ///< all ions [nm^-2 s^-1]
+    double ion_flux = 0; ///< all ions [nm^-2 s^-1]
     std::vector<PlasmaIon> ions;
     double ion_transverse_temperature_ev = 0.1;
     std::vector<PlasmaNeutral> neutrals;
-    double mean_sheath_voltage = 0;         ///< [V]; used where no table is given
+    double mean_sheath_voltage = 0; ///< [V]; used where no table is given
     /// Imported energy-angle tables, one per ion name; "" = for every ion.
     std::map<std::string, fluxes::IonDistribution> ion_energies;
-    std::vector<std::string> unused;        ///< set points that the model does not use, as written
+    std::vector<std::string> unused; ///< set points that the model does not use, as written
 };
 
 /// A height named in the file: "10 nm below gate top", "middle of gate".
@@ -47,43 +47,43 @@ struct Place {
 struct StepEnd {
     enum class Kind { time, share_of_step, reaches, cleared };
     Kind kind = Kind::time;
-    double time_s = 0;        ///< kind time
-    double share = 0;         ///< kind share_of_step: 0.3 = 30 %
-    std::string of_step;      ///< kind share_of_step
-    std::string film;         ///< kind reaches, cleared: film touched or exposed
-    std::string at;           ///< opening's name, or "open field"
+    double time_s = 0;   ///< kind time
+    double share = 0;    ///< kind share_of_step: 0.3 = 30 %
+    std::string of_step; ///< kind share_of_step
+    std::string film;    ///< kind reaches, cleared: film touched or exposed
+    std::string at;      ///< opening's name, or "open field"
 };
 struct RecipeStep {
     std::string name;
     std::string plasma;
     StepEnd end;
-    double no_longer_than_s = 0;   ///< for reaches and cleared
-    bool must_end = false;         ///< true: hitting no_longer_than is an error (status 4)
+    double no_longer_than_s = 0; ///< for reaches and cleared
+    bool must_end = false;       ///< true: hitting no_longer_than is an error (status 4)
 };
 
 /// A stated range: at least, at most, a to b. Lengths in nm, angles in deg.
 struct Target {
     std::string metric; ///< "bottom cd", "bow", "mask left"
     std::optional<double> at_least, at_most;
-    std::string text;   ///< as written
+    std::string text; ///< as written
 };
 
 struct Case {
     std::string title;
-    std::string file;             ///< path of the case file
+    std::string file; ///< path of the case file
     geometry::Domain domain;
-    double spacing_asked = 0;     ///< [nm] before rounding to a whole number of cells
-    std::vector<std::string> materials;     ///< the run's material list; ids are indices
-    std::vector<char> insulator;            ///< per material: 1 = electrical insulator
-    std::vector<geometry::Film> films;      ///< mask first if there is one
-    int substrate_first = 0;                ///< index of the first film below the mask in `films`
+    double spacing_asked = 0;           ///< [nm] before rounding to a whole number of cells
+    std::vector<std::string> materials; ///< the run's material list; ids are indices
+    std::vector<char> insulator;        ///< per material: 1 = electrical insulator
+    std::vector<geometry::Film> films;  ///< mask first if there is one
+    int substrate_first = 0;            ///< index of the first film below the mask in `films`
     geometry::MaskShape mask;
-    std::string mask_material;              ///< empty without a mask
-    double liner_thickness = 0;             ///< [nm] conformal film at the start, 0 = none
+    std::string mask_material;  ///< empty without a mask
+    double liner_thickness = 0; ///< [nm] conformal film at the start, 0 = none
     int liner_material = -1;
     std::map<std::string, Plasma> plasmas;
-    std::string chemistry;                  ///< name or path as written
-    fluxes::Mechanism mechanism;            ///< loaded for `materials`
+    std::string chemistry;                         ///< name or path as written
+    fluxes::Mechanism mechanism;                   ///< loaded for `materials`
     std::vector<fluxes::IonReflection> reflection; ///< per material
     /// How many parameters of the mechanism are of each standing.
     std::map<fluxes::Standing, int> standing;
@@ -92,11 +92,11 @@ struct Case {
     std::map<std::string, Place> cd_places; ///< "top", "middle", "bottom"
     double frame_interval_s = 0;            ///< how often a frame is written; 0 = 10 frames a run
     std::vector<Target> targets;
-    std::vector<std::string> tool_log;      ///< "key: value" kept with the result, not used
+    std::vector<std::string> tool_log; ///< "key: value" kept with the result, not used
     std::uint64_t seed = 1;
     int rays_per_element = 64;
     int ions_per_species = 65536;
-    std::string resolved_yaml;              ///< the case as understood, every default filled in
+    std::string resolved_yaml; ///< the case as understood, every default filled in
     std::vector<std::string> warnings;
 };
 

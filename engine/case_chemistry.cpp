@@ -13,14 +13,11 @@ namespace {
 /// The first `material: NAME` at or below an entry.
 const Entry* find_material(const Entry& entry, const std::string& name) {
     for (const auto& [key, value] : entry.members) {
-        if (key == "material" && value.text == name)
-            return &value;
-        if (const Entry* found = find_material(value, name))
-            return found;
+        if (key == "material" && value.text == name) return &value;
+        if (const Entry* found = find_material(value, name)) return found;
     }
     for (const Entry& item : entry.items)
-        if (const Entry* found = find_material(item, name))
-            return found;
+        if (const Entry* found = find_material(item, name)) return found;
     return nullptr;
 }
 
@@ -35,8 +32,7 @@ NamedUse use_of(const std::string& name, const Entry& entry) {
 void add_use(std::vector<NamedUse>& uses, const std::string& name, const Entry& entry) {
     const bool known = std::any_of(uses.begin(), uses.end(),
                                    [&](const NamedUse& use) { return use.name == name; });
-    if (!known)
-        uses.push_back({name, entry.at, entry.path});
+    if (!known) uses.push_back({name, entry.at, entry.path});
 }
 
 ChemistryRequest request_of(const Entry& root, const std::string& folder, const Case& the_case) {
@@ -64,24 +60,21 @@ ChemistryRequest request_of(const Entry& root, const std::string& folder, const 
 
 void build_chemistry(const Entry& root, const std::string& folder, Case& result,
                      Problems& problems) {
-    if (!root["chemistry"].is_good)
-        return;
+    if (!root["chemistry"].is_good) return;
     result.chemistry = root["chemistry"].text;
     const ChemistryRequest request = request_of(root, folder, result);
     const MaterialsLibrary library = load_materials(request.configs, problems);
     std::optional<Chemistry> chemistry = load_chemistry(request, library, problems);
     for (auto& [name, plasma] : result.plasmas)
         for (PlasmaIon& ion : plasma.ions)
-            if (const SpeciesData* data = library.ion(ion.name))
-                ion.mass_amu = data->mass_amu;
-    if (!chemistry)
-        return;
+            if (const SpeciesData* data = library.ion(ion.name)) ion.mass_amu = data->mass_amu;
+    if (!chemistry) return;
     result.materials = std::move(chemistry->materials);
     for (const std::string& name : result.materials) {
         const MaterialData* data = library.material(name);
         // Resists charge up like any other insulator.
-        const bool insulates = data && (data->kind == MaterialClass::insulator ||
-                                        data->kind == MaterialClass::resist);
+        const bool insulates =
+            data && (data->kind == MaterialClass::insulator || data->kind == MaterialClass::resist);
         result.insulator.push_back(insulates ? 1 : 0);
     }
     result.mechanism = std::move(chemistry->mechanism);

@@ -33,13 +33,11 @@ void build_sampling(const Entry& root, Case& result, Problems& problems) {
 
 Case build(YamlNode& node, const std::string& name, const std::string& folder,
            const std::vector<std::string>& overrides, Problems& problems) {
-    if (!node.is_map())
-        problems.throw_if_any(); // a syntax error: there is nothing to check
+    if (!node.is_map()) problems.throw_if_any(); // a syntax error: there is nothing to check
     apply_overrides(node, overrides, problems);
     copy_plasmas(node, problems);
     absolute_files(node, folder);
-    if (node.at.file.empty())
-        node.at.file = name;
+    if (node.at.file.empty()) node.at.file = name;
     Entry root = check(node, case_rules(), problems);
     Case result;
     result.file = name;

@@ -32,8 +32,7 @@ struct MaskBuilder {
                 fmt::format("{} holes need symmetry: full; extruded has trench or lines", shape));
             return;
         }
-        if (!cd.is_good || !item["centre"].is_good)
-            return;
+        if (!cd.is_good || !item["centre"].is_good) return;
         Opening opening;
         opening.name = item["name"].text;
         opening.shape = shape == "round"      ? Opening::Shape::round
@@ -63,8 +62,7 @@ struct MaskBuilder {
     }
 
     void add_array(const Entry& item, const Opening& first) {
-        if (!item["space"].is_good || !item["count"].is_good)
-            return;
+        if (!item["space"].is_good || !item["count"].is_good) return;
         const int count = static_cast<int>(item["count"].number);
         // cd and space are both measured at cd_at: their sum does not depend on the height.
         const double step = item["cd"].number + item["space"].number;
@@ -72,8 +70,7 @@ struct MaskBuilder {
             Opening opening = first;
             opening.name = count > 1 ? fmt::format("{} {}", first.name, n + 1) : first.name;
             opening.centre_x = first.centre_x + (n - 0.5 * (count - 1)) * step;
-            if (!add_one(item, opening))
-                return;
+            if (!add_one(item, opening)) return;
         }
     }
 
@@ -112,10 +109,8 @@ struct MaskBuilder {
     bool fits(double centre, double width, double period) const {
         const double half = 0.5 * period, reach = 0.5 * widest(width);
         const double slack = 1e-9 * period;
-        if (std::abs(centre) > half + slack || reach > half + slack)
-            return false;
-        if (result.domain.sides == geometry::Sides::periodic)
-            return true;
+        if (std::abs(centre) > half + slack || reach > half + slack) return false;
+        if (result.domain.sides == geometry::Sides::periodic) return true;
         return std::abs(centre) + reach <= half + slack ||
                std::abs(std::abs(centre) - half) <= slack;
     }
@@ -153,8 +148,7 @@ struct MaskBuilder {
 
     double apart(double a, double b, double period) const {
         const double plain = std::abs(a - b);
-        if (result.domain.sides == geometry::Sides::mirror || period <= 0)
-            return plain;
+        if (result.domain.sides == geometry::Sides::mirror || period <= 0) return plain;
         return std::min(plain, std::abs(period - plain));
     }
 };
@@ -170,8 +164,7 @@ std::vector<std::string> opening_names(const Case& result) {
 
 void build_mask(const Entry& root, Case& result, Problems& problems) {
     const Entry& mask = root["mask"];
-    if (!mask.is_given || !mask.is_good)
-        return;
+    if (!mask.is_given || !mask.is_good) return;
     result.mask.thickness = mask["thickness"].number;
     result.mask.sidewall_angle_deg =
         mask["sidewall_angle"].is_good ? mask["sidewall_angle"].number : 90;
@@ -184,13 +177,11 @@ void build_mask(const Entry& root, Case& result, Problems& problems) {
     MaskBuilder builder{result, problems};
     builder.widening =
         2 * result.mask.thickness / std::tan(result.mask.sidewall_angle_deg * rad_per_deg);
-    if (std::abs(result.mask.sidewall_angle_deg - 90) < 1e-12)
-        builder.widening = 0;
+    if (std::abs(result.mask.sidewall_angle_deg - 90) < 1e-12) builder.widening = 0;
     const std::size_t before = problems.size();
     for (const Entry& item : mask["openings"].items)
         builder.add(item);
-    if (problems.size() == before)
-        builder.check_gaps(mask["openings"]);
+    if (problems.size() == before) builder.check_gaps(mask["openings"]);
 }
 
 } // namespace rille::engine

@@ -29,8 +29,7 @@ struct PlaceReader {
 
     const geometry::Film* film(const std::string& name) {
         const int index = film_index(result, name);
-        if (index >= 0)
-            return &result.films[index];
+        if (index >= 0) return &result.films[index];
         const std::vector<std::string> names = film_names(result);
         wrong(fmt::format("no film is called {}; there are: {}{}", quoted(name), listed(names, 8),
                           did_you_mean(name, names)));
@@ -38,8 +37,7 @@ struct PlaceReader {
     }
 
     std::optional<double> bottom(const geometry::Film& film) {
-        if (std::isfinite(film.bottom))
-            return film.bottom;
+        if (std::isfinite(film.bottom)) return film.bottom;
         wrong(fmt::format("{} is semi-infinite: it has no bottom", quoted(film.name)));
         return std::nullopt;
     }
@@ -56,8 +54,7 @@ struct PlaceReader {
             name = text.substr(0, text.size() - 7);
         }
         const geometry::Film* found = film(name);
-        if (!found)
-            return std::nullopt;
+        if (!found) return std::nullopt;
         return at_top ? found->top : bottom(*found);
     }
 
@@ -67,22 +64,18 @@ struct PlaceReader {
             return std::nullopt;
         }
         const geometry::Film* found = film(trimmed(entry.text.substr(10)));
-        if (!found)
-            return std::nullopt;
+        if (!found) return std::nullopt;
         const std::optional<double> low = bottom(*found);
-        if (!low)
-            return std::nullopt;
+        if (!low) return std::nullopt;
         return 0.5 * (found->top + *low);
     }
 
     std::optional<double> read() {
         const std::string& text = entry.text;
-        if (text.rfind("middle", 0) == 0)
-            return middle();
+        if (text.rfind("middle", 0) == 0) return middle();
         const std::size_t above = text.find(" above "), below = text.find(" below ");
         if (above == std::string::npos && below == std::string::npos) {
-            if (ends_with(text, " top") || ends_with(text, " bottom"))
-                return interface(text, true);
+            if (ends_with(text, " top") || ends_with(text, " bottom")) return interface(text, true);
             wrong(fmt::format("{} is not a place; {}", quoted(text), place_form));
             return std::nullopt;
         }
@@ -94,8 +87,7 @@ struct PlaceReader {
             return std::nullopt;
         }
         const std::optional<double> base = interface(trimmed(text.substr(cut + 7)), is_above);
-        if (!base)
-            return std::nullopt;
+        if (!base) return std::nullopt;
         return is_above ? *base + offset.value : *base - offset.value;
     }
 };
@@ -110,18 +102,15 @@ Entry written_place(const Rule& rule, const std::string& text) {
 
 Entry* member_of(Entry& entry, const std::string& key) {
     for (auto& [name, value] : entry.members)
-        if (name == key)
-            return &value;
+        if (name == key) return &value;
     return nullptr;
 }
 
 /// Three heights in the first film of the stack, a tenth of it from its ends but at most 10 nm.
 void add_default_places(Entry& places, const Case& result) {
-    if (result.films.size() <= static_cast<std::size_t>(result.substrate_first))
-        return;
+    if (result.films.size() <= static_cast<std::size_t>(result.substrate_first)) return;
     const geometry::Film& film = result.films[result.substrate_first];
-    if (!std::isfinite(film.bottom))
-        return;
+    if (!std::isfinite(film.bottom)) return;
     const double inset = std::min(10.0, 0.1 * (film.top - film.bottom));
     const std::string length = format_quantity(inset, Dimension::length);
     const Rule& rule = places.rule->members[0];
@@ -153,8 +142,7 @@ std::vector<Measurable> measurable(const Entry& root, const Case& result) {
         list.push_back({name, angle});
     list.push_back({"selectivity", std::nullopt});
     for (const geometry::Film& film : result.films)
-        if (film.name != "mask")
-            list.push_back({film.name + " loss", length});
+        if (film.name != "mask") list.push_back({film.name + " loss", length});
     return list;
 }
 
@@ -182,8 +170,7 @@ struct TargetReader {
         }
         std::vector<std::string> names;
         for (const Measurable& one : known) {
-            if (one.name == name)
-                return &one;
+            if (one.name == name) return &one;
             names.push_back(one.name);
         }
         wrong(fmt::format("no quantity is called {}; there are: {}{}", quoted(name),
@@ -205,8 +192,7 @@ struct TargetReader {
                 error = quoted(text) + ": a number without a unit is due";
             result = read.value;
         }
-        if (error.empty())
-            return result;
+        if (error.empty()) return result;
         wrong(error);
         return std::nullopt;
     }
@@ -216,8 +202,7 @@ struct TargetReader {
         target.metric = metric;
         target.text = entry.text;
         const Measurable* measured = quantity();
-        if (!measured)
-            return target;
+        if (!measured) return target;
         const std::optional<Dimension> due = measured->dimension;
         const std::string& text = entry.text;
         const std::size_t to = text.find(" to ");
@@ -239,11 +224,9 @@ struct TargetReader {
     void read_range(std::string low, const std::string& high, std::optional<Dimension> due,
                     Target& target) {
         const NumberText first = split_number(low), last = split_number(high);
-        if (first.error.empty() && first.unit.empty() && last.error.empty())
-            low += " " + last.unit;
+        if (first.error.empty() && first.unit.empty() && last.error.empty()) low += " " + last.unit;
         target.at_most = value(high, due);
-        if (!target.at_most)
-            return;
+        if (!target.at_most) return;
         target.at_least = value(low, due);
         if (target.at_least && *target.at_least > *target.at_most)
             wrong(fmt::format("{}: the first value is the smaller one", quoted(entry.text)));
@@ -255,16 +238,12 @@ struct TargetReader {
 void build_measure(Entry& root, Case& result, Problems& problems) {
     Entry* measure = member_of(root, "measure");
     Entry* places = measure ? member_of(*measure, "cd") : nullptr;
-    if (!places || !places->is_good)
-        return;
-    if (!places->is_given && problems.empty())
-        add_default_places(*places, result);
+    if (!places || !places->is_good) return;
+    if (!places->is_given && problems.empty()) add_default_places(*places, result);
     for (const auto& [label, entry] : places->members) {
-        if (!entry.is_good || result.films.empty())
-            continue;
+        if (!entry.is_good || result.films.empty()) continue;
         const std::optional<double> z = PlaceReader{entry, result, problems}.read();
-        if (z)
-            result.cd_places[label] = {entry.text, *z};
+        if (z) result.cd_places[label] = {entry.text, *z};
     }
 }
 

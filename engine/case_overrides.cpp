@@ -28,8 +28,7 @@ std::vector<std::string> names_below(const YamlNode& node) {
     for (const YamlNode::Member& member : node.members)
         names.push_back(member.key);
     for (const YamlNode& item : node.items)
-        if (const YamlNode* name = item.find("name"))
-            names.push_back(name->text);
+        if (const YamlNode* name = item.find("name")) names.push_back(name->text);
     return names;
 }
 
@@ -39,27 +38,21 @@ YamlNode* descend(YamlNode& node, std::string& rest) {
     std::string best;
     for (const std::string& name : names_below(node)) {
         const bool fits = rest == name || rest.rfind(name + ".", 0) == 0;
-        if (fits && name.size() > best.size())
-            best = name;
+        if (fits && name.size() > best.size()) best = name;
     }
-    if (best.empty())
-        return nullptr;
+    if (best.empty()) return nullptr;
     rest = rest.size() > best.size() ? rest.substr(best.size() + 1) : "";
-    if (YamlNode* member = node.find(best))
-        return member;
+    if (YamlNode* member = node.find(best)) return member;
     for (YamlNode& item : node.items)
         if (const YamlNode* name = item.find("name"))
-            if (name->text == best)
-                return &item;
+            if (name->text == best) return &item;
     return nullptr;
 }
 
 /// The rule below `rule` for a key; nullptr where the table knows none.
 const Rule* rule_below(const Rule* rule, const std::string& key) {
-    if (!rule)
-        return nullptr;
-    if (rule->kind == Rule::Kind::map)
-        return rule->member(key);
+    if (!rule) return nullptr;
+    if (rule->kind == Rule::Kind::map) return rule->member(key);
     return rule->kind == Rule::Kind::dictionary ? &rule->members[0] : nullptr;
 }
 
@@ -72,8 +65,7 @@ YamlNode* make_maps(YamlNode* node, const Rule* rule, std::string& rest, const L
         rule = rule_below(rule, key);
         const bool is_branch =
             rule && (rule->kind == Rule::Kind::map || rule->kind == Rule::Kind::dictionary);
-        if (!in_map || !is_branch)
-            break;
+        if (!in_map || !is_branch) break;
         YamlNode made;
         made.kind = YamlNode::Kind::map;
         made.at = at;
@@ -96,8 +88,7 @@ void apply_override(YamlNode& root, const std::string& text, Problems& problems)
     YamlNode value = read_yaml_text(text.substr(equals + 1), at.file, own);
     for (const Problem& problem : own.sorted())
         problems.add(at, path, problem.message);
-    if (!own.empty())
-        return;
+    if (!own.empty()) return;
     place_everywhere(value, at);
     YamlNode* node = &root;
     const Rule* rule = &case_rules();
@@ -105,8 +96,7 @@ void apply_override(YamlNode& root, const std::string& text, Problems& problems)
     while (!rest.empty()) {
         const std::string before = rest;
         YamlNode* next = descend(*node, rest);
-        if (!next)
-            break;
+        if (!next) break;
         const std::size_t used = before.size() - rest.size() - (rest.empty() ? 0 : 1);
         rule = rule_below(rule, before.substr(0, used));
         node = next;
@@ -136,8 +126,7 @@ void resolve(YamlNode& plasmas, const std::string& name, std::vector<std::string
              std::vector<std::string> open, Problems& problems) {
     YamlNode& plasma = *plasmas.find(name);
     const YamlNode* from = plasma.find("from");
-    if (!from || std::find(done.begin(), done.end(), name) != done.end())
-        return;
+    if (!from || std::find(done.begin(), done.end(), name) != done.end()) return;
     done.push_back(name);
     open.push_back(name);
     const std::string base_name = from->text;
@@ -160,14 +149,11 @@ void resolve(YamlNode& plasmas, const std::string& name, std::vector<std::string
         list.erase(std::remove_if(list.begin(), list.end(), [&](auto& m) { return m.key == key; }),
                    list.end());
     };
-    if (plasma.find("rf_bias"))
-        drop("ion_energies");
-    if (plasma.find("ion_energies"))
-        drop("rf_bias");
+    if (plasma.find("rf_bias")) drop("ion_energies");
+    if (plasma.find("ion_energies")) drop("rf_bias");
     drop("from");
     for (const YamlNode::Member& own : plasma.members) {
-        if (own.key == "from")
-            continue;
+        if (own.key == "from") continue;
         drop(own.key.c_str());
         result.members.push_back(own);
     }
@@ -176,8 +162,7 @@ void resolve(YamlNode& plasmas, const std::string& name, std::vector<std::string
 }
 
 void make_absolute(YamlNode* node, const std::string& folder) {
-    if (!node || !node->is_scalar() || node->text.empty())
-        return;
+    if (!node || !node->is_scalar() || node->text.empty()) return;
     const std::filesystem::path path(node->text);
     if (path.is_relative())
         node->text = std::filesystem::absolute(folder / path).lexically_normal().string();
@@ -195,12 +180,10 @@ void apply_overrides(YamlNode& root, const std::vector<std::string>& overrides,
 
 void copy_plasmas(YamlNode& root, Problems& problems) {
     YamlNode* plasmas = root.find("plasmas");
-    if (!plasmas || !plasmas->is_map())
-        return;
+    if (!plasmas || !plasmas->is_map()) return;
     std::vector<std::string> done;
     for (const std::string& name : names_below(*plasmas))
-        if (plasmas->find(name)->is_map())
-            resolve(*plasmas, name, done, {}, problems);
+        if (plasmas->find(name)->is_map()) resolve(*plasmas, name, done, {}, problems);
     set_paths(root, "");
 }
 
@@ -210,12 +193,10 @@ void absolute_files(YamlNode& root, const std::string& folder) {
     if (text.find('/') != std::string::npos || text.find(".yaml") != std::string::npos)
         make_absolute(chemistry, folder);
     YamlNode* plasmas = root.find("plasmas");
-    if (!plasmas)
-        return;
+    if (!plasmas) return;
     for (YamlNode::Member& plasma : plasmas->members) {
         YamlNode* energies = plasma.value.find("ion_energies");
-        if (!energies)
-            continue;
+        if (!energies) continue;
         make_absolute(energies->find("file"), folder);
         for (YamlNode::Member& ion : energies->members)
             make_absolute(ion.value.find("file"), folder);

@@ -23,8 +23,7 @@ void build_ions(const Entry& entry, Plasma& plasma, Problems& problems) {
         sum += share.number;
         plasma.ions.push_back({name, 0, share.number});
     }
-    if (!all_good)
-        return;
+    if (!all_good) return;
     // Shares are written with few digits; thirds of 100 % are as good as a third.
     if (std::abs(sum - 1) > 2e-3)
         problems.add(ions.at, ions.path,
@@ -47,16 +46,14 @@ void check_table(const IonTable& table, const std::string& ion, const Entry& fil
 void add_table(const Entry& entry, const Entry& parent, const std::string& ion, Case& result,
                Plasma& plasma, Problems& problems) {
     const Entry& file = entry["file"];
-    if (!file.is_good)
-        return;
+    if (!file.is_good) return;
     const std::string shown = std::filesystem::path(file.text).filename().string();
     if (!std::filesystem::is_regular_file(file.text)) {
         problems.add(file.at, file.path, fmt::format("no such file: {}", file.text));
         return;
     }
     const std::optional<IonTable> table = read_ion_table(file.text, shown, problems);
-    if (!table)
-        return;
+    if (!table) return;
     check_table(*table, ion, file, problems);
     const Entry& own = entry["transverse_temperature"];
     const double transverse =
@@ -82,8 +79,7 @@ void build_energies(const Entry& entry, Case& result, Plasma& plasma, Problems& 
         problems.add(entry.at, entry.path,
                      "nothing says how fast the ions are; give rf_bias: {mean_sheath: 120 V}, or "
                      "ion_energies");
-    if (!energies.is_given || !energies.is_good)
-        return;
+    if (!energies.is_given || !energies.is_good) return;
     if (energies["file"].is_given) {
         add_table(energies, entry, "", result, plasma, problems);
         return;
@@ -103,8 +99,7 @@ void build_energies(const Entry& entry, Case& result, Plasma& plasma, Problems& 
 
 void list_unused(const Entry& entry, Plasma& plasma) {
     for (const char* key : {"pressure", "source_power", "source_frequency", "gas_temperature"})
-        if (entry[key].is_given)
-            plasma.unused.push_back(std::string(key) + ": " + entry[key].text);
+        if (entry[key].is_given) plasma.unused.push_back(std::string(key) + ": " + entry[key].text);
     for (const auto& [gas, flow] : entry["flows"].members)
         plasma.unused.push_back("flows." + gas + ": " + flow.text);
 }
@@ -129,8 +124,7 @@ void build_plasmas(const Entry& root, Case& result, Problems& problems) {
             plasma.ions.empty() && !entry["ions"].is_given)
             problems.add(entry["ion_flux"].at, entry.path,
                          "an ion flux needs ions, for example ions: {Ar+: 100 %}");
-        if (entry.is_good)
-            build_energies(entry, result, plasma, problems);
+        if (entry.is_good) build_energies(entry, result, plasma, problems);
         list_unused(entry, plasma);
         result.plasmas.emplace(name, std::move(plasma));
     }

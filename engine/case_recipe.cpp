@@ -40,8 +40,7 @@ struct StepBuilder {
         else
             problems.add(entry.at, entry.path,
                          "nothing ends the step; give time, or until with no_longer_than");
-        if (!until.is_given)
-            refuse_without_until();
+        if (!until.is_given) refuse_without_until();
     }
 
     void refuse_without_until() {
@@ -52,8 +51,7 @@ struct StepBuilder {
     }
 
     void build_time(const Entry& time) {
-        if (!time.is_good)
-            return;
+        if (!time.is_good) return;
         const std::size_t of = time.text.find(" of ");
         if (of == std::string::npos) {
             const QuantityText value = parse_quantity(time.text, Dimension::time);
@@ -86,8 +84,7 @@ struct StepBuilder {
         std::vector<std::string> earlier;
         for (const RecipeStep& done : result.steps)
             earlier.push_back(done.name);
-        if (std::find(earlier.begin(), earlier.end(), step.end.of_step) != earlier.end())
-            return;
+        if (std::find(earlier.begin(), earlier.end(), step.end.of_step) != earlier.end()) return;
         problems.add(time.at, time.path,
                      fmt::format("no earlier step is called {}{}{}", quoted(step.end.of_step),
                                  earlier.empty() ? "" : "; there are: " + listed(earlier),
@@ -95,8 +92,7 @@ struct StepBuilder {
     }
 
     void build_until(const Entry& until) {
-        if (!until.is_good)
-            return;
+        if (!until.is_good) return;
         const Entry& reaches = until["reaches"];
         const Entry& cleared = until["cleared"];
         if (reaches.is_given == cleared.is_given)
@@ -107,10 +103,8 @@ struct StepBuilder {
         const Entry& film = reaches.is_given ? reaches : cleared;
         step.end.kind = reaches.is_given ? StepEnd::Kind::reaches : StepEnd::Kind::cleared;
         step.end.film = film.text;
-        if (film.is_good)
-            check_film(film);
-        if (until["at"].is_good)
-            build_place(until["at"]);
+        if (film.is_good) check_film(film);
+        if (until["at"].is_good) build_place(until["at"]);
         const Entry& longest = entry["no_longer_than"];
         step.no_longer_than_s = longest.number;
         step.must_end = entry["must_end"].number != 0;
@@ -159,13 +153,11 @@ struct StepBuilder {
     std::string opening_called(const std::string& name) const {
         std::vector<std::string> copies;
         for (const geometry::Opening& opening : result.mask.openings) {
-            if (opening.name == name)
-                return name;
+            if (opening.name == name) return name;
             const bool is_copy =
                 opening.name.rfind(name + " ", 0) == 0 && !name.empty() &&
                 opening.name.find_first_not_of("0123456789", name.size() + 1) == std::string::npos;
-            if (is_copy)
-                copies.push_back(opening.name);
+            if (is_copy) copies.push_back(opening.name);
         }
         return copies.empty() ? "" : copies[copies.size() / 2];
     }
@@ -178,8 +170,7 @@ void build_recipe(const Entry& root, Case& result, Problems& problems) {
     result.wafer_temperature_k = recipe["wafer_temperature"].number;
     for (const Entry& entry : recipe["steps"].items) {
         StepBuilder builder{entry, result, problems, {}};
-        if (entry.is_good)
-            builder.build();
+        if (entry.is_good) builder.build();
         result.steps.push_back(builder.step);
     }
     const Entry& every = root["frames"]["every"];

@@ -18,11 +18,9 @@ int common_cells(double width_x, double width_y, double asked) {
     const int near = std::max(1, static_cast<int>(std::lround(width_x / asked)));
     for (int off = 0; off <= std::max(1, near / 5); ++off)
         for (const int cells : {near + off, near - off}) {
-            if (cells < 1)
-                continue;
+            if (cells < 1) continue;
             const double rows = width_y * cells / width_x;
-            if (rows > 0.5 && std::abs(rows - std::round(rows)) < 1e-9 * rows)
-                return cells;
+            if (rows > 0.5 && std::abs(rows - std::round(rows)) < 1e-9 * rows) return cells;
         }
     return 0;
 }
@@ -92,8 +90,7 @@ struct StackBuilder {
 
     double bottom_of(const Entry& thickness) {
         constexpr double nowhere = -std::numeric_limits<double>::infinity();
-        if (!thickness.is_good)
-            return top - 1;
+        if (!thickness.is_good) return top - 1;
         if (thickness.text == "semi-infinite") {
             ended = true;
             return nowhere;
@@ -115,19 +112,16 @@ struct StackBuilder {
 
 int material_index(Case& result, const Entry& name) {
     auto& list = result.materials;
-    if (!name.is_good)
-        return 0;
+    if (!name.is_good) return 0;
     const auto found = std::find(list.begin(), list.end(), name.text);
-    if (found != list.end())
-        return static_cast<int>(found - list.begin());
+    if (found != list.end()) return static_cast<int>(found - list.begin());
     list.push_back(name.text);
     return static_cast<int>(list.size()) - 1;
 }
 
 int film_index(const Case& result, const std::string& name) {
     for (std::size_t f = 0; f < result.films.size(); ++f)
-        if (result.films[f].name == name)
-            return static_cast<int>(f);
+        if (result.films[f].name == name) return static_cast<int>(f);
     return -1;
 }
 
@@ -146,14 +140,12 @@ void build_domain(const Entry& root, Case& result, Problems& problems) {
         symmetry.text == "full" ? geometry::Symmetry::full : geometry::Symmetry::extruded;
     result.domain.sides =
         root["sides"].text == "periodic" ? geometry::Sides::periodic : geometry::Sides::mirror;
-    if (!symmetry.is_good || !pitch.is_good)
-        return;
+    if (!symmetry.is_good || !pitch.is_good) return;
     if (result.domain.extruded() && pitch.numbers.size() > 1) {
         problems.add(pitch.at, pitch.path, "extruded has one pitch; [x, y] is for symmetry: full");
         return;
     }
-    if (root["spacing"].is_good)
-        build_cells(pitch, root["spacing"], result, problems);
+    if (root["spacing"].is_good) build_cells(pitch, root["spacing"], result, problems);
 }
 
 void build_stack(const Entry& root, Case& result, Problems& problems) {

@@ -31,15 +31,13 @@ std::string find_file(const ChemistryRequest& request, Problems& problems) {
     const std::string& name = request.chemistry.name;
     if (is_path(name)) {
         const std::filesystem::path path = std::filesystem::path(request.case_folder) / name;
-        if (std::filesystem::is_regular_file(path))
-            return path.string();
+        if (std::filesystem::is_regular_file(path)) return path.string();
         problems.add(request.chemistry.at, request.chemistry.path,
                      fmt::format("there is no file {}", path.string()));
         return "";
     }
     const std::vector<std::string> known = chemistry_names(request.configs);
-    if (contains(known, name))
-        return request.configs + "/chemistries/" + name + ".yaml";
+    if (contains(known, name)) return request.configs + "/chemistries/" + name + ".yaml";
     problems.add(request.chemistry.at, request.chemistry.path,
                  fmt::format("there is no chemistry {}; known: {}, or the path of a file{}",
                              quoted(name), listed(known), did_you_mean(name, known)));
@@ -49,14 +47,11 @@ std::string find_file(const ChemistryRequest& request, Problems& problems) {
 std::vector<std::string> read_names(const YamlNode* node, const std::vector<std::string>& known,
                                     const char* file, Problems& problems) {
     std::vector<std::string> names;
-    if (!node)
-        return names;
-    if (!node->is_list())
-        problems.add(node->at, node->path, "a list of names is due");
+    if (!node) return names;
+    if (!node->is_list()) problems.add(node->at, node->path, "a list of names is due");
     for (const YamlNode& item : node->items) {
         const std::optional<std::string> name = read_text(item, problems);
-        if (!name)
-            continue;
+        if (!name) continue;
         if (!contains(known, *name))
             problems.add(
                 item.at, item.path,
@@ -92,8 +87,7 @@ double kept(const SurfaceChemistry& surface, int neutral, int coverage) {
     constexpr double room_k = 300;
     double sum = 0;
     const auto applies = [&](const SurfacePart& part) {
-        if (part.kind == SurfacePart::Kind::whole)
-            return true;
+        if (part.kind == SurfacePart::Kind::whole) return true;
         return part.kind == SurfacePart::Kind::bare ? coverage < 0 : part.coverage == coverage;
     };
     for (const SurfaceProcess& process : surface.processes) {
@@ -136,11 +130,9 @@ public:
         chemistry.file = file;
         const std::size_t before = problems_.size();
         root_ = read_yaml_file(file, problems_);
-        if (problems_.size() != before)
-            return;
+        if (problems_.size() != before) return;
         read_head();
-        if (!materials_)
-            return;
+        if (!materials_) return;
         choose_species();
         read_surfaces();
         read_the_rest();
@@ -159,12 +151,10 @@ private:
         names_.neutrals = read_names(map.required("neutrals"), names_of(library_.neutrals),
                                      "configs/neutrals.yaml", problems_);
         yields_ = map.optional("yields");
-        if (yields_)
-            MapReader(*yields_, problems_);
+        if (yields_) MapReader(*yields_, problems_);
         materials_ = map.required("materials");
         map.finish();
-        if (!materials_)
-            return;
+        if (!materials_) return;
         MapReader(*materials_, problems_);
         for (const YamlNode::Member& member : materials_->members) {
             names_.materials.push_back(member.key);
@@ -205,13 +195,11 @@ private:
                       bool in_use) {
         const YamlNode* node = materials_->find(name);
         const MaterialData* data = library_.material(name);
-        if (!node || !data)
-            return;
+        if (!node || !data) return;
         IonReflection reflection = data->reflection;
         mechanism.surfaces.push_back(reader.read(*node, *data, reflection));
         check_probabilities(mechanism.surfaces.back(), mechanism.neutrals, *node, problems_);
-        if (!in_use)
-            return;
+        if (!in_use) return;
         chemistry.reflection.push_back(reflection);
         count(data->standing);
     }
@@ -234,8 +222,7 @@ private:
         std::vector<std::string> films;
         ProcessReader reader(names_, library_, yields_, scratch, films, problems_);
         for (const std::string& name : names_.materials)
-            if (!contains(chemistry.materials, name))
-                read_surface(reader, name, scratch, false);
+            if (!contains(chemistry.materials, name)) read_surface(reader, name, scratch, false);
     }
 
     void count(const std::map<Standing, int>& counts) {
@@ -258,8 +245,7 @@ std::vector<std::string> chemistry_names(const std::string& configs) {
     std::vector<std::string> names;
     std::error_code none;
     for (const auto& entry : std::filesystem::directory_iterator(configs + "/chemistries", none))
-        if (entry.path().extension() == ".yaml")
-            names.push_back(entry.path().stem().string());
+        if (entry.path().extension() == ".yaml") names.push_back(entry.path().stem().string());
     std::sort(names.begin(), names.end());
     return names;
 }
@@ -268,12 +254,10 @@ std::optional<Chemistry> load_chemistry(const ChemistryRequest& request,
                                         const MaterialsLibrary& library, Problems& problems) {
     const std::size_t before = problems.size();
     const std::string file = find_file(request, problems);
-    if (file.empty())
-        return std::nullopt;
+    if (file.empty()) return std::nullopt;
     Loader loader(request, library, problems);
     loader.load(file);
-    if (problems.size() != before)
-        return std::nullopt;
+    if (problems.size() != before) return std::nullopt;
     return std::move(loader.chemistry);
 }
 

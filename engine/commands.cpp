@@ -38,7 +38,7 @@ std::string utc_now() {
 
 /// Shows progress and writes frames as they come.
 class RunWatcher : public RunObserver {
-  public:
+public:
     RunWatcher(RunOutput& output, Progress& progress) : output_(output), progress_(progress) {}
     void progressed(const Simulation&, const HistoryRow& row, double share) override {
         ProgressState state;
@@ -50,7 +50,7 @@ class RunWatcher : public RunObserver {
     }
     void framed(const SurfaceState& state) override { output_.add_frame(state); }
 
-  private:
+private:
     RunOutput& output_;
     Progress& progress_;
 };

@@ -30,8 +30,7 @@ Progress::Progress(std::ostream& out, Style style, std::function<double()> secon
       start_(seconds_()) {}
 
 Progress::Style Progress::style_for(int file_descriptor, bool quiet) {
-    if (quiet)
-        return Style::quiet;
+    if (quiet) return Style::quiet;
     return isatty(file_descriptor) ? Style::bar : Style::lines;
 }
 
@@ -39,24 +38,19 @@ std::string Progress::line(const ProgressState& state, double elapsed) const {
     const double share = std::clamp(state.share, 0.0, 1.0);
     std::string text =
         fmt::format("{:3.0f} %  {} {:.1f} s", std::floor(100 * share), state.step, state.time_s);
-    if (state.depth_nm)
-        text += fmt::format("  depth {:.1f} nm", *state.depth_nm);
+    if (state.depth_nm) text += fmt::format("  depth {:.1f} nm", *state.depth_nm);
     // A first guess from less than this would jump about.
-    if (share >= 1)
-        return text;
-    if (share > 0.005)
-        text += "  left " + duration_text(elapsed * (1 - share) / share);
+    if (share >= 1) return text;
+    if (share > 0.005) text += "  left " + duration_text(elapsed * (1 - share) / share);
     return text;
 }
 
 void Progress::update(const ProgressState& state) {
     last_ = state;
-    if (style_ == Style::quiet)
-        return;
+    if (style_ == Style::quiet) return;
     const double now = seconds_();
     const double interval = style_ == Style::bar ? bar_interval_s : line_interval_s;
-    if (any_ && now - shown_ < interval)
-        return;
+    if (any_ && now - shown_ < interval) return;
     any_ = true;
     shown_ = now;
     if (style_ == Style::lines) {
@@ -70,20 +64,16 @@ void Progress::update(const ProgressState& state) {
 }
 
 void Progress::finish() {
-    if (style_ == Style::quiet || !any_)
-        return;
+    if (style_ == Style::quiet || !any_) return;
     shown_ = -1e300; // the last state is always shown
     update(last_);
-    if (style_ == Style::bar)
-        out_ << '\n' << std::flush;
+    if (style_ == Style::bar) out_ << '\n' << std::flush;
 }
 
 std::string duration_text(double seconds) {
     const long long whole = std::llround(std::max(0.0, std::min(seconds, 1e12)));
-    if (whole < 60)
-        return fmt::format("{} s", whole);
-    if (whole < 3600)
-        return fmt::format("{} min {:02} s", whole / 60, whole % 60);
+    if (whole < 60) return fmt::format("{} s", whole);
+    if (whole < 3600) return fmt::format("{} min {:02} s", whole / 60, whole % 60);
     return fmt::format("{} h {:02} min", whole / 3600, whole / 60 % 60);
 }
 

@@ -24,19 +24,16 @@ Entry entry_for(const YamlNode& node, const Rule& rule) {
 template <class T>
 bool store(Entry& entry, const std::optional<T>& value) {
     entry.is_good = value.has_value();
-    if (value)
-        entry.number = static_cast<double>(*value);
+    if (value) entry.number = static_cast<double>(*value);
     return entry.is_good;
 }
 
 /// "a map with the keys name, material", "a list", for messages.
 std::string due(const Rule& rule) {
-    if (rule.kind == Kind::list)
-        return "a list";
+    if (rule.kind == Kind::list) return "a list";
     std::vector<std::string> keys;
     for (const Rule& member : rule.members)
-        if (member.later.empty() && !member.key.empty())
-            keys.push_back(member.key);
+        if (member.later.empty() && !member.key.empty()) keys.push_back(member.key);
     return keys.empty() || rule.kind == Kind::alternatives
                ? "a map of keys and values"
                : fmt::format("a map with {}", listed(keys, 6));
@@ -57,11 +54,9 @@ void report_unknown(const YamlNode& node, const YamlNode::Member& member, const 
     std::vector<std::string> allowed;
     std::vector<std::string> absent; // a key that is there already was not meant
     for (const Rule& known : rule.members) {
-        if (!known.later.empty())
-            continue;
+        if (!known.later.empty()) continue;
         allowed.push_back(known.key);
-        if (!node.find(known.key))
-            absent.push_back(known.key);
+        if (!node.find(known.key)) absent.push_back(known.key);
     }
     std::string guess = did_you_mean(member.key, absent);
     const std::string near = closest(member.key, allowed);
@@ -86,8 +81,7 @@ Entry default_entry(const YamlNode& parent, const Rule& rule) {
     node.path = (parent.path.empty() ? "" : parent.path + ".") + rule.key;
     const bool is_map = rule.default_text == "{}";
     node.kind = is_map ? YamlNode::Kind::map : YamlNode::Kind::scalar;
-    if (!is_map)
-        node.text = rule.default_text;
+    if (!is_map) node.text = rule.default_text;
     Problems none;
     Entry entry = check(node, rule, none);
     none.throw_if_any();
@@ -113,8 +107,7 @@ void check_map(const YamlNode& node, const Rule& rule, Entry& entry, Problems& p
             problems.add(member.key_at, member.value.path, "not available yet: " + known->later);
     }
     for (const Rule& member : rule.members) {
-        if (!member.later.empty())
-            continue;
+        if (!member.later.empty()) continue;
         if (const YamlNode* value = node.find(member.key))
             entry.members.emplace_back(member.key, check(*value, member, problems));
         else if (member.is_required && !node.is_damaged &&
@@ -143,8 +136,7 @@ void check_items(const YamlNode& node, const Rule& rule, Entry& entry, Problems&
     for (const YamlNode& item : node.items) {
         entry.items.push_back(check(item, rule.members[0], problems));
         const YamlNode* name = item.find("name");
-        if (!name || !name->is_scalar())
-            continue;
+        if (!name || !name->is_scalar()) continue;
         for (const auto& [used, line] : names)
             if (used == name->text)
                 problems.add(name->at, name->path,
@@ -159,10 +151,8 @@ const Rule* alternative(const YamlNode& node, const Rule& rule, Problems& proble
     const YamlNode* selector = node.find(rule.selector);
     std::vector<std::string> words;
     for (const Rule& choice : rule.members) {
-        if (choice.key == (selector ? "*" : ""))
-            return &choice;
-        if (selector && choice.key == selector->text)
-            return &choice;
+        if (choice.key == (selector ? "*" : "")) return &choice;
+        if (selector && choice.key == selector->text) return &choice;
         words.push_back(choice.key);
     }
     if (selector)
@@ -190,13 +180,10 @@ void check_quantities(const YamlNode& node, const Rule& rule, Entry& entry, Prob
         const YamlNode& one = node.is_list() ? node.items[i] : node;
         const auto value = read_quantity(one, rule.dimension, rule.range, problems);
         entry.is_good = entry.is_good && value.has_value();
-        if (value)
-            entry.numbers.push_back(*value);
-        if (node.is_list())
-            entry.text += (i ? ", " : "[") + one.text;
+        if (value) entry.numbers.push_back(*value);
+        if (node.is_list()) entry.text += (i ? ", " : "[") + one.text;
     }
-    if (node.is_list())
-        entry.text += "]";
+    if (node.is_list()) entry.text += "]";
 }
 
 void check_word(const YamlNode& node, const Rule& rule, Entry& entry, Problems& problems) {
@@ -210,8 +197,7 @@ void check_word(const YamlNode& node, const Rule& rule, Entry& entry, Problems& 
 }
 
 void check_structure(const YamlNode& node, const Rule& rule, Entry& entry, Problems& problems) {
-    if (!is_structure(node, rule, problems))
-        return;
+    if (!is_structure(node, rule, problems)) return;
     entry.is_good = !node.is_damaged;
     if (rule.kind == Kind::list)
         check_items(node, rule, entry, problems);
@@ -226,8 +212,7 @@ void check_structure(const YamlNode& node, const Rule& rule, Entry& entry, Probl
 const Entry& Entry::operator[](const std::string& key) const {
     static const Entry absent;
     for (const auto& [name, entry] : members)
-        if (name == key)
-            return entry;
+        if (name == key) return entry;
     return absent;
 }
 
@@ -268,8 +253,7 @@ Entry check(const YamlNode& node, const Rule& rule, Problems& problems) {
         check_structure(node, rule, entry, problems);
         break;
     case Kind::alternatives:
-        if (!is_structure(node, rule, problems))
-            break;
+        if (!is_structure(node, rule, problems)) break;
         if (const Rule* choice = alternative(node, rule, problems))
             return check(node, *choice, problems);
         break;

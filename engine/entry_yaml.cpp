@@ -16,14 +16,11 @@ std::string scalar(const std::string& text) {
                  other_reading(text).empty() && text.back() != ' ' && text.back() != ':' &&
                  text.find_first_of("\n\t\"\\,[]{}") == std::string::npos &&
                  text.find(": ") == std::string::npos && text.find('#') == std::string::npos;
-    if (text.size() > 1 && text[0] == '-' && text[1] >= '0' && text[1] <= '9')
-        plain = true;
-    if (plain)
-        return text;
+    if (text.size() > 1 && text[0] == '-' && text[1] >= '0' && text[1] <= '9') plain = true;
+    if (plain) return text;
     std::string result = "\"";
     for (const char c : text) {
-        if (c == '"' || c == '\\')
-            result += '\\';
+        if (c == '"' || c == '\\') result += '\\';
         if (c == '\n')
             result += "\\n";
         else if (c == '\t')
@@ -81,8 +78,7 @@ std::string inline_text(const Entry& entry) {
 void write_members(const Entry& entry, const std::string& indent, std::string& out) {
     bool first = true;
     for (const auto& [key, value] : entry.members) {
-        if (!first)
-            out += indent;
+        if (!first) out += indent;
         first = false;
         out += scalar(key) + ":";
         if (is_block(value)) {
@@ -102,8 +98,7 @@ void write(const Entry& entry, const std::string& indent, std::string& out) {
     }
     bool first = true;
     for (const Entry& item : entry.items) {
-        if (!first)
-            out += indent;
+        if (!first) out += indent;
         first = false;
         out += "- ";
         if (is_block(item))

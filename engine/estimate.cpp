@@ -24,9 +24,9 @@ double expected_depth(const Case& the_case) {
         else if (step.end.kind != StepEnd::Kind::share_of_step)
             for (const geometry::Film& film : the_case.films)
                 if (film.name == step.end.film)
-                    field.advance(std::min(step.no_longer_than_s,
-                                           field.time_to(film.top, step.plasma)),
-                                  step.plasma);
+                    field.advance(
+                        std::min(step.no_longer_than_s, field.time_to(film.top, step.plasma)),
+                        step.plasma);
     return top - field.height();
 }
 
@@ -79,11 +79,16 @@ std::string estimate_text(const Case& the_case, const Estimate& e) {
 }
 
 nlohmann::json estimate_json(const Case& the_case, const Estimate& e) {
-    return {{"title", the_case.title},       {"spacing_nm", the_case.domain.spacing},
-            {"voxels", e.voxels},            {"surface_elements", e.elements},
-            {"memory_MB", e.memory_mb},      {"rays_per_element", the_case.rays_per_element},
-            {"refreshes", e.refreshes},      {"process_time_s", e.process_s},
-            {"wall_time_s", e.wall_seconds}, {"warnings", the_case.warnings}};
+    return {{"title", the_case.title},
+            {"spacing_nm", the_case.domain.spacing},
+            {"voxels", e.voxels},
+            {"surface_elements", e.elements},
+            {"memory_MB", e.memory_mb},
+            {"rays_per_element", the_case.rays_per_element},
+            {"refreshes", e.refreshes},
+            {"process_time_s", e.process_s},
+            {"wall_time_s", e.wall_seconds},
+            {"warnings", the_case.warnings}};
 }
 
 } // namespace rille::engine

@@ -10,12 +10,12 @@ namespace rille::engine {
 
 /// What a run will cost, before it is started.
 struct Estimate {
-    std::size_t elements = 0;       ///< surface elements at the expected end
-    std::size_t voxels = 0;         ///< of the narrow band at the expected end
+    std::size_t elements = 0; ///< surface elements at the expected end
+    std::size_t voxels = 0;   ///< of the narrow band at the expected end
     double memory_mb = 0;
-    int refreshes = 0;              ///< of the arrivals, two solves each
-    double process_s = 0;           ///< simulated time
-    double wall_seconds = 0;        ///< measured on one refresh of the initial front, scaled
+    int refreshes = 0;       ///< of the arrivals, two solves each
+    double process_s = 0;    ///< simulated time
+    double wall_seconds = 0; ///< measured on one refresh of the initial front, scaled
 };
 
 /// Builds the initial front, times one refresh of its arrivals and scales to the expected end.

@@ -28,8 +28,7 @@ void fill_materials(SurfaceState& state, const Case& c) {
         for (std::size_t f = state.grown.material.size(); f-- > 0;) {
             const double thickness = state.grown.thickness[f][e];
             grown += thickness;
-            if (outermost < 0 && thickness > no_film_nm)
-                outermost = state.grown.material[f];
+            if (outermost < 0 && thickness > no_film_nm) outermost = state.grown.material[f];
         }
         const double depth = grown + just_inside * c.domain.spacing;
         state.film[e] = stack.film_at(s.centre[e].z - s.normal[e].z * depth);
@@ -54,8 +53,7 @@ void add_coverages(SurfaceState& state, const Case& c, const fluxes::SurfaceStep
     for (const std::string& name : names)
         add_field(state, "coverage_" + name, "1", [&](std::size_t e) {
             const auto material = static_cast<std::size_t>(state.material[e]);
-            if (material >= surfaces.size())
-                return 0.0;
+            if (material >= surfaces.size()) return 0.0;
             const auto& known = surfaces[material].coverages;
             const auto at = std::find(known.begin(), known.end(), name);
             return at == known.end() ? 0.0 : step.response[e].coverage[at - known.begin()];

@@ -15,8 +15,7 @@ public:
     Line(bool header) : header_(header) {}
 
     void add(const std::string& name, const std::string& value) {
-        if (!text_.empty())
-            text_ += ',';
+        if (!text_.empty()) text_ += ',';
         text_ += header_ ? name : csv_field(value);
     }
     void add(const std::string& name, double value) { add(name, shortest(value)); }

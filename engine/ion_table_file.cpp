@@ -37,8 +37,7 @@ struct TableReader {
         for (std::string raw; std::getline(stream, raw);) {
             ++line;
             const std::string trim = trimmed(raw);
-            if (trim.empty())
-                continue;
+            if (trim.empty()) continue;
             if (trim[0] == '#')
                 read_header(trim.substr(1), {name, line, 1});
             else
@@ -64,8 +63,7 @@ struct TableReader {
 
     void read_header(const std::string& text, const Location& at) {
         const std::size_t equals = text.find('=');
-        if (equals == std::string::npos)
-            return; // a remark
+        if (equals == std::string::npos) return; // a remark
         const std::string key = trimmed(text.substr(0, equals));
         static const std::vector<std::string> known = {
             "quantity",       "species",          "mass_amu",         "charge",
@@ -76,8 +74,7 @@ struct TableReader {
                                      did_you_mean(key, known)));
             return;
         }
-        if (key == "quantity")
-            quantity_at = at;
+        if (key == "quantity") quantity_at = at;
         const std::string value = trimmed(text.substr(equals + 1));
         table.header[key] = value;
         check_header(key, value, at);
@@ -119,8 +116,7 @@ struct TableReader {
     void edge(std::vector<double>& edges, const Cell& cell) {
         const std::size_t before = problems.size();
         const double value = number(cell);
-        if (problems.size() != before)
-            return;
+        if (problems.size() != before) return;
         if (!edges.empty() && !(value > edges.back()))
             problems.add(cell.at, "",
                          fmt::format("{} does not exceed the edge {:.12g} before it",
@@ -131,8 +127,7 @@ struct TableReader {
 
     /// Drops a row of column names; true if the row count and widths make sense.
     bool columns(const std::vector<std::string>& names) {
-        if (!rows.empty() && rows[0][0].text == names[0])
-            rows.erase(rows.begin());
+        if (!rows.empty() && rows[0][0].text == names[0]) rows.erase(rows.begin());
         for (const Row& row : rows)
             if (row.size() != names.size()) {
                 problems.add(row[0].at, "",
@@ -144,8 +139,7 @@ struct TableReader {
     }
 
     void read_bins() {
-        if (!columns({"E_lo_eV", "E_hi_eV", "weight"}))
-            return;
+        if (!columns({"E_lo_eV", "E_hi_eV", "weight"})) return;
         auto& edges = table.energy_edges_ev;
         for (const Row& row : rows) {
             const double low = number(row[0]);
@@ -165,15 +159,13 @@ struct TableReader {
     }
 
     void read_points() {
-        if (!columns({"E_eV", "value"}))
-            return;
+        if (!columns({"E_eV", "value"})) return;
         std::vector<double> value;
         for (const Row& row : rows) {
             edge(table.energy_edges_ev, row[0]);
             value.push_back(number(row[1]));
         }
-        if (rows.size() < 2 || value.size() != table.energy_edges_ev.size())
-            return;
+        if (rows.size() < 2 || value.size() != table.energy_edges_ev.size()) return;
         for (std::size_t i = 0; i + 1 < value.size(); ++i) {
             const double width = table.energy_edges_ev[i + 1] - table.energy_edges_ev[i];
             table.weight.push_back({0.5 * (value[i] + value[i + 1]) * width});
@@ -181,8 +173,7 @@ struct TableReader {
     }
 
     void read_matrix(const std::string& quantity) {
-        if (rows.size() < 3)
-            return;
+        if (rows.size() < 3) return;
         for (std::size_t c = 1; c < rows[0].size(); ++c)
             edge(table.angle_edges_deg, rows[0][c]);
         if (!table.angle_edges_deg.empty() && table.angle_edges_deg.back() > 90)
@@ -198,15 +189,13 @@ struct TableReader {
                                                   : "energy edge and one for each angle bin"));
                 continue;
             }
-            if (due == 1)
-                break;
+            if (due == 1) break;
             std::vector<double> line;
             for (std::size_t c = 1; c < width; ++c)
                 line.push_back(number(rows[r][c]));
             table.weight.push_back(std::move(line));
         }
-        if (problems.empty())
-            integrate_bins(quantity);
+        if (problems.empty()) integrate_bins(quantity);
     }
 
     void integrate_bins(const std::string& quantity) {
@@ -215,10 +204,8 @@ struct TableReader {
                 const double energy = table.energy_edges_ev[e + 1] - table.energy_edges_ev[e];
                 const double low = table.angle_edges_deg[a], high = table.angle_edges_deg[a + 1];
                 const double sr = 2 * pi * (std::cos(low * pi / 180) - std::cos(high * pi / 180));
-                if (quantity == "per_eV_per_sr")
-                    table.weight[e][a] *= sr * energy;
-                if (quantity == "per_eV_per_deg")
-                    table.weight[e][a] *= (high - low) * energy;
+                if (quantity == "per_eV_per_sr") table.weight[e][a] *= sr * energy;
+                if (quantity == "per_eV_per_deg") table.weight[e][a] *= (high - low) * energy;
             }
     }
 
@@ -267,8 +254,7 @@ struct TableReader {
             last += value;
         for (const auto& line : table.weight)
             for (std::size_t a = 0; a < table.angle_edges_deg.size() && a < line.size(); ++a)
-                if (table.angle_edges_deg[a] >= 60)
-                    oblique += line[a];
+                if (table.angle_edges_deg[a] >= 60) oblique += line[a];
         if (last > 0.01)
             table.warnings.push_back(fmt::format("{}: {:.3g} % of the ions sit in the last energy "
                                                  "bin; is the table cut off?",
@@ -290,12 +276,10 @@ std::optional<IonTable> parse_ion_table(const std::string& text, const std::stri
     TableReader reader{shown, own, {}, {}, {}};
     reader.split(text);
     reader.read();
-    if (own.empty())
-        reader.finish();
+    if (own.empty()) reader.finish();
     for (const Problem& problem : own.sorted())
         problems.add({problem.file, problem.line, problem.column}, problem.path, problem.message);
-    if (!own.empty())
-        return std::nullopt;
+    if (!own.empty()) return std::nullopt;
     return std::move(reader.table);
 }
 
@@ -303,8 +287,7 @@ std::optional<IonTable> read_ion_table(const std::string& path, const std::strin
                                        Problems& problems) {
     std::ifstream file(path, std::ios::binary);
     std::ostringstream text;
-    if (file)
-        text << file.rdbuf();
+    if (file) text << file.rdbuf();
     if (!file || text.str().empty()) {
         problems.add({shown, 0, 0}, "", "cannot be read, or is empty");
         return std::nullopt;

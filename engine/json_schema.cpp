@@ -16,8 +16,7 @@ using Kind = Rule::Kind;
 std::string escaped(const std::string& unit) {
     std::string result;
     for (const char c : unit) {
-        if (std::string("/().^+$*?[]{}|\\").find(c) != std::string::npos)
-            result += '\\';
+        if (std::string("/().^+$*?[]{}|\\").find(c) != std::string::npos) result += '\\';
         result += c;
     }
     return result;
@@ -38,8 +37,7 @@ std::string description(const Rule& rule) {
         const std::string range = range_text(rule.range, rule.dimension);
         text += range.empty() ? "]" : "; " + range + "]";
     }
-    if (!rule.form.empty())
-        text += " [" + rule.form + "]";
+    if (!rule.form.empty()) text += " [" + rule.form + "]";
     if (!rule.default_text.empty() && rule.default_text != "{}")
         text += " (default " + rule.default_text + ")";
     return text;
@@ -52,15 +50,12 @@ Json map_schema(const Rule& rule) {
     Json properties = Json::object();
     Json required = Json::array();
     for (const Rule& member : rule.members) {
-        if (!member.later.empty())
-            continue;
+        if (!member.later.empty()) continue;
         properties[member.key] = schema_of(member);
-        if (member.is_required)
-            required.push_back(member.key);
+        if (member.is_required) required.push_back(member.key);
     }
     schema["properties"] = properties;
-    if (!required.empty())
-        schema["required"] = required;
+    if (!required.empty()) schema["required"] = required;
     return schema;
 }
 
@@ -79,8 +74,7 @@ Json quantities_schema(const Rule& rule) {
                        {"items", one},
                        {"minItems", rule.least_items},
                        {"maxItems", rule.most_items}};
-    if (rule.least_items > 1)
-        return list;
+    if (rule.least_items > 1) return list;
     return {{"anyOf", Json::array({one, list})}};
 }
 
@@ -124,8 +118,7 @@ Json form_of(const Rule& rule) {
 Json schema_of(const Rule& rule) {
     Json schema = form_of(rule);
     const std::string text = description(rule);
-    if (!text.empty())
-        schema["description"] = text;
+    if (!text.empty()) schema["description"] = text;
     return schema;
 }
 

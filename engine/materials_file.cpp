@@ -31,13 +31,10 @@ DataFile open(const std::string& path, const char* list, const char* common, Pro
     DataFile file;
     const std::size_t before = problems.size();
     file.root = read_yaml_file(path, problems);
-    if (problems.size() != before)
-        return file;
+    if (problems.size() != before) return file;
     MapReader map(file.root, problems);
-    if (const YamlNode* format = map.required("format"))
-        read_integer(*format, {1, 1}, problems);
-    if (common)
-        file.common = map.required(common);
+    if (const YamlNode* format = map.required("format")) read_integer(*format, {1, 1}, problems);
+    if (common) file.common = map.required(common);
     file.entries = map.required(list);
     map.finish();
     if (file.entries && !file.entries->is_map()) {
@@ -48,17 +45,14 @@ DataFile open(const std::string& path, const char* list, const char* common, Pro
 }
 
 MaterialClass class_of(const std::string& word) {
-    if (word == "conductor")
-        return MaterialClass::conductor;
-    if (word == "semiconductor")
-        return MaterialClass::semiconductor;
+    if (word == "conductor") return MaterialClass::conductor;
+    if (word == "semiconductor") return MaterialClass::semiconductor;
     return word == "resist" ? MaterialClass::resist : MaterialClass::insulator;
 }
 
 void read_materials(const std::string& path, MaterialsLibrary& library, Problems& problems) {
     const DataFile file = open(path, "materials", "ion_reflection", problems);
-    if (!file.entries || !file.common)
-        return;
+    if (!file.entries || !file.common) return;
     ParameterReader shared(problems);
     const fluxes::IonReflection common = read_reflection(*file.common, {}, shared, problems);
     library.common_standing = shared.counts();
@@ -88,8 +82,7 @@ std::vector<SpeciesData> read_species(const std::string& path, const char* list,
                                       Problems& problems) {
     std::vector<SpeciesData> species;
     const DataFile file = open(path, list, nullptr, problems);
-    if (!file.entries)
-        return species;
+    if (!file.entries) return species;
     ParameterReader parameters(problems);
     for (const YamlNode::Member& member : file.entries->members) {
         MapReader map(member.value, problems);
@@ -103,8 +96,7 @@ std::vector<SpeciesData> read_species(const std::string& path, const char* list,
 std::vector<ElementData> read_elements(const std::string& path, Problems& problems) {
     std::vector<ElementData> elements;
     const DataFile file = open(path, "elements", nullptr, problems);
-    if (!file.entries)
-        return elements;
+    if (!file.entries) return elements;
     ParameterReader parameters(problems);
     for (const YamlNode::Member& member : file.entries->members) {
         MapReader map(member.value, problems);

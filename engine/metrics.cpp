@@ -70,8 +70,7 @@ private:
     }
 
     std::optional<Measured> depth_centre() const {
-        if (!floor_)
-            return {};
+        if (!floor_) return {};
         return scaled(-1, floor_->centre);
     }
 
@@ -100,15 +99,13 @@ private:
         const auto cd = geometry::cd_at(c_.domain, surface_, site_, place.z);
         add(name + " cd", "nm", "full width along x " + where, cd, absent);
         std::optional<Measured> change;
-        if (cd)
-            change = shifted(*cd, -site_.width_x);
+        if (cd) change = shifted(*cd, -site_.width_x);
         add(name + " cd_change", "nm",
             "CD " + where +
                 " less the opening as drawn at the mask "
                 "bottom, full width along x; CD loss of the opening is minus this",
             change, absent);
-        if (!site_.round)
-            return;
+        if (!site_.round) return;
         add(name + " cd y", "nm", "full width along y " + where,
             geometry::cd_y_at(c_.domain, surface_, site_, place.z), absent);
         add(name + " cd area", "nm", "2 sqrt(area / pi) of the section " + where,
@@ -131,8 +128,7 @@ private:
                 widest = found->cd;
                 depth = Measured{-found->z, {}};
                 const auto top = geometry::cd_at(c_.domain, surface_, site_, top_z());
-                if (top)
-                    bow = combine(1, found->cd, -1, *top);
+                if (top) bow = combine(1, found->cd, -1, *top);
             }
         }
         add("bow cd", "nm", "widest CD of the film walls, the mask left out", widest, absent);
@@ -161,14 +157,12 @@ private:
     }
 
     void mask() {
-        if (c_.mask.thickness <= 0)
-            return;
+        if (c_.mask.thickness <= 0) return;
         const double h = c_.domain.spacing;
         std::optional<Measured> undercut;
         const auto below = geometry::cd_at(c_.domain, surface_, site_, -h);
         const auto above = geometry::cd_at(c_.domain, surface_, site_, h);
-        if (below && above)
-            undercut = combine(0.5, *below, -0.5, *above);
+        if (below && above) undercut = combine(0.5, *below, -0.5, *above);
         add("undercut", "nm",
             "half of the CD one grid spacing below the mask bottom less the CD one "
             "spacing above it",
@@ -188,11 +182,9 @@ private:
 
     std::optional<Measured> selectivity(const std::optional<Measured>& left) const {
         const auto depth = depth_centre();
-        if (!depth || !left)
-            return {};
+        if (!depth || !left) return {};
         const double loss = c_.mask.thickness - left->value;
-        if (loss < smallest_mask_loss_nm || depth->value <= 0)
-            return {};
+        if (loss < smallest_mask_loss_nm || depth->value <= 0) return {};
         // d(D / L) = dD / L - D dL / L^2, and dL is minus the change of what is left.
         Measured ratio = combine(1 / loss, *depth, depth->value / (loss * loss), *left);
         ratio.value = depth->value / loss;
@@ -200,8 +192,7 @@ private:
     }
 
     void films() {
-        if (!floor_)
-            return;
+        if (!floor_) return;
         for (std::size_t f = c_.substrate_first; f < c_.films.size(); ++f) {
             const geometry::Film& film = c_.films[f];
             const std::string name = film.name + " loss";
@@ -211,13 +202,10 @@ private:
                 std::any_of(c_.targets.begin(), c_.targets.end(), [&](const Target& target) {
                     return target.metric == name || target.metric.rfind(name + " of ", 0) == 0;
                 });
-            if (!holds_floor && !wanted)
-                continue;
+            if (!holds_floor && !wanted) continue;
             Measured loss = shifted(scaled(-1, floor_->deepest), film.top);
-            if (loss.value < 0)
-                loss = Measured();
-            if (loss.value > film.top - film.bottom)
-                loss = Measured{film.top - film.bottom, {}};
+            if (loss.value < 0) loss = Measured();
+            if (loss.value > film.top - film.bottom) loss = Measured{film.top - film.bottom, {}};
             add(name, "nm",
                 "depth of the deepest point of the floor below the top of " + film.name +
                     ", at most its thickness",
@@ -249,26 +237,20 @@ std::optional<Measured> FeatureMeasurement::mask_left(const Case& c, const Surfa
     for (const FeatureSite& other : feature_sites(c)) {
         const bool same_row =
             !other.round || std::fabs(other.centre_y - site.centre_y) < 0.5 * other.width_y;
-        if (!same_row)
-            continue;
+        if (!same_row) continue;
         const double right = other.centre_x + 0.5 * other.width_x;
         const double left = other.centre_x - 0.5 * other.width_x;
-        if (right <= edge_left)
-            far_left = std::max(far_left, right);
-        if (left >= edge_right)
-            far_right = std::min(far_right, left);
+        if (right <= edge_left) far_left = std::max(far_left, right);
+        if (left >= edge_right) far_right = std::min(far_right, left);
     }
     std::optional<Measured> lower;
     for (const auto& [from, to] :
          {std::pair(far_left, edge_left), std::pair(edge_right, far_right)}) {
-        if (to - from < c.domain.spacing)
-            continue;
+        if (to - from < c.domain.spacing) continue;
         const auto top = geometry::top_between(c.domain, surface, from, to, site.centre_y);
-        if (top && (!lower || top->value < lower->value))
-            lower = top;
+        if (top && (!lower || top->value < lower->value)) lower = top;
     }
-    if (lower && lower->value < 0)
-        lower = Measured();
+    if (lower && lower->value < 0) lower = Measured();
     return lower;
 }
 
@@ -279,12 +261,10 @@ void find_clearing(const Case& c, const std::string& feature, const geometry::Fl
     const double tolerance = 0.25 * c.domain.spacing;
     for (std::size_t f = c.substrate_first; f < c.films.size(); ++f) {
         const geometry::Film& film = c.films[f];
-        if (!std::isfinite(film.bottom) || floor.deepest.value >= film.top)
-            continue;
+        if (!std::isfinite(film.bottom) || floor.deepest.value >= film.top) continue;
         const double left = std::clamp(highest - film.bottom, 0.0, film.top - film.bottom);
         const bool touched = highest < film.top || floor.deepest.value < film.top - tolerance;
-        if (touched)
-            out.push_back({feature, film.name, left <= tolerance, left});
+        if (touched) out.push_back({feature, film.name, left <= tolerance, left});
     }
 }
 
@@ -323,8 +303,7 @@ Metrics measure(const Case& c, const SurfaceState& state) {
     for (std::size_t f = 0; f < sites.size(); ++f) {
         FeatureMeasurement(c, state, c.mask.openings[f], sites[f], result.metrics).all();
         const auto floor = geometry::floor_of(c.domain, state.surface, sites[f]);
-        if (floor)
-            find_clearing(c, c.mask.openings[f].name, *floor, result.clearing);
+        if (floor) find_clearing(c, c.mask.openings[f].name, *floor, result.clearing);
     }
     result.targets = judge_targets(c, result);
     return result;

@@ -11,8 +11,7 @@ namespace rille::engine {
 namespace {
 
 int decimals_for(double value, double error) {
-    if (!(error > 0))
-        return std::fabs(value) < 1000 ? 2 : 1;
+    if (!(error > 0)) return std::fabs(value) < 1000 ? 2 : 1;
     // Two digits of an error that starts with 1, else one: the error itself is known to some 25 %.
     const double power = std::floor(std::log10(error));
     const bool starts_with_one = error / std::pow(10.0, power) < 1.95;
@@ -22,8 +21,7 @@ int decimals_for(double value, double error) {
 } // namespace
 
 std::string shortest(double value) {
-    if (std::isnan(value))
-        return "nan";
+    if (std::isnan(value)) return "nan";
     std::array<char, 32> buffer;
     const auto end = std::to_chars(buffer.data(), buffer.data() + buffer.size(), value);
     return std::string(buffer.data(), end.ptr);
@@ -36,17 +34,14 @@ std::string rounded(double value, double error) {
 }
 
 std::string with_error(double value, double error) {
-    if (!(error > 0))
-        return rounded(value);
-    if (error < 0.005)
-        return rounded(value) + " ± <0.01";
+    if (!(error > 0)) return rounded(value);
+    if (error < 0.005) return rounded(value) + " ± <0.01";
     return rounded(value, error) + " ± " +
            fmt::format("{:.{}f}", error, decimals_for(value, error));
 }
 
 std::string csv_field(const std::string& text) {
-    if (text.find_first_of(",\"\r\n") == std::string::npos)
-        return text;
+    if (text.find_first_of(",\"\r\n") == std::string::npos) return text;
     std::string quoted = "\"";
     for (const char c : text)
         quoted += c == '"' ? std::string("\"\"") : std::string(1, c);

@@ -51,10 +51,9 @@ const fluxes::SurfaceResponse& OpenField::flat(int material, const std::string& 
     const fluxes::MaterialsInReach reach{{0, 1}, {material}};
     fluxes::Sampling sampling;
     sampling.ions_per_species = 0; // nothing to reflect onto
-    const auto solved = fluxes::solve_surface(domain, surface, caster, reach, case_.mechanism,
-                                              case_.reflection,
-                                              sources_of(case_, case_.plasmas.at(plasma)), sampling,
-                                              nullptr);
+    const auto solved =
+        fluxes::solve_surface(domain, surface, caster, reach, case_.mechanism, case_.reflection,
+                              sources_of(case_, case_.plasmas.at(plasma)), sampling, nullptr);
     return known_.emplace(std::pair(plasma, material), solved.response[0]).first->second;
 }
 

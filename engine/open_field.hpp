@@ -14,22 +14,23 @@ namespace rille::engine {
 /// A wide unmasked area of the same stack, etched at the flat-film rate: what a fab's endpoint
 /// detector sees. Its depth is followed exactly through the films.
 class OpenField {
-  public:
+public:
     explicit OpenField(const Case&);
 
     /// Response of a flat, unmasked surface of the run's material in the named plasma.
     const fluxes::SurfaceResponse& flat(int material, const std::string& plasma) const;
     /// Height of the flat surface [nm].
     double height() const { return height_; }
-    /// Time [s] from now until the surface reaches height z under the named plasma, infinity if never.
+    /// Time [s] from now until the surface reaches height z under the named plasma, infinity if
+    /// never.
     double time_to(double z, const std::string& plasma) const;
     void advance(double dt_s, const std::string& plasma);
 
-  private:
+private:
     const Case& case_;
     geometry::Stack stack_;
     double height_ = 0;
-    double grown_ = 0;       ///< [nm] of film on top
+    double grown_ = 0; ///< [nm] of film on top
     int grown_material_ = -1;
     mutable std::map<std::pair<std::string, int>, fluxes::SurfaceResponse> known_;
 };

@@ -23,8 +23,7 @@ std::string reason() {
 
 void write_plain(const std::string& path, std::string_view content) {
     File file(std::fopen(path.c_str(), "wb"), &std::fclose);
-    if (!file)
-        throw OutputError(path, "cannot create the file", reason());
+    if (!file) throw OutputError(path, "cannot create the file", reason());
     if (std::fwrite(content.data(), 1, content.size(), file.get()) != content.size() ||
         std::fflush(file.get()) != 0)
         throw OutputError(path, "cannot write the file", reason());
@@ -45,8 +44,7 @@ std::string temporary(const fs::path& place) {
 void make_folder(const std::string& path) {
     std::error_code error;
     fs::create_directories(path, error);
-    if (error)
-        throw OutputError(path, "cannot make the folder", error.message());
+    if (error) throw OutputError(path, "cannot make the folder", error.message());
     if (!fs::is_directory(path, error))
         throw OutputError(path, "cannot make the folder", "something else has this name");
 }
@@ -55,29 +53,23 @@ void remove_earlier_run(const std::string& path) {
     std::error_code error;
     for (const char* name : output_names::all) {
         fs::remove(fs::path(path) / name, error);
-        if (error)
-            throw OutputError(path + "/" + name, "cannot remove the file", error.message());
+        if (error) throw OutputError(path + "/" + name, "cannot remove the file", error.message());
     }
     const fs::path frames = fs::path(path) / output_names::frames;
-    if (!fs::is_directory(frames, error))
-        return;
+    if (!fs::is_directory(frames, error)) return;
     for (const auto& entry : fs::directory_iterator(frames, error))
-        if (entry.path().extension() == ".vtp")
-            fs::remove(entry.path(), error);
-    if (error)
-        throw OutputError(frames.string(), "cannot empty the folder", error.message());
+        if (entry.path().extension() == ".vtp") fs::remove(entry.path(), error);
+    if (error) throw OutputError(frames.string(), "cannot empty the folder", error.message());
 }
 
 } // namespace
 
 OutputFolder::OutputFolder(std::string path, Existing existing) : path_(std::move(path)) {
-    if (path_.empty())
-        throw OutputError("(empty)", "cannot make the folder", "no name given");
+    if (path_.empty()) throw OutputError("(empty)", "cannot make the folder", "no name given");
     make_folder(path_);
     std::error_code error;
     const bool empty = fs::is_empty(path_, error);
-    if (error)
-        throw OutputError(path_, "cannot look into the folder", error.message());
+    if (error) throw OutputError(path_, "cannot look into the folder", error.message());
     if (!empty && existing == Existing::refuse)
         throw OutputError(path_, "will not write here",
                           "the folder holds files; name another one, or use --force");
@@ -89,8 +81,7 @@ OutputFolder::OutputFolder(std::string path, Existing existing) : path_(std::mov
         throw;
     }
     remove_quietly(probe);
-    if (!empty)
-        remove_earlier_run(path_);
+    if (!empty) remove_earlier_run(path_);
 }
 
 void OutputFolder::write(const std::string& name, std::string_view content) {
@@ -100,8 +91,7 @@ void OutputFolder::write(const std::string& name, std::string_view content) {
 void OutputFolder::write_with(const std::string& name,
                               const std::function<void(const std::string&)>& writer) {
     const fs::path place = fs::path(path_) / name;
-    if (place.parent_path() != fs::path(path_))
-        make_folder(place.parent_path().string());
+    if (place.parent_path() != fs::path(path_)) make_folder(place.parent_path().string());
     const std::string part = temporary(place);
     try {
         writer(part);
@@ -123,8 +113,7 @@ void OutputFolder::write_with(const std::string& name,
 
 void OutputFolder::note(const std::string& name) {
     const auto at = std::lower_bound(written_.begin(), written_.end(), name);
-    if (at == written_.end() || *at != name)
-        written_.insert(at, name);
+    if (at == written_.end() || *at != name) written_.insert(at, name);
 }
 
 std::vector<std::string> OutputFolder::written() const {
@@ -133,14 +122,12 @@ std::vector<std::string> OutputFolder::written() const {
 
 std::string read_file(const std::string& path) {
     File file(std::fopen(path.c_str(), "rb"), &std::fclose);
-    if (!file)
-        throw OutputError(path, "cannot open the file", reason());
+    if (!file) throw OutputError(path, "cannot open the file", reason());
     std::string content;
     char buffer[65536];
     while (const std::size_t got = std::fread(buffer, 1, sizeof buffer, file.get()))
         content.append(buffer, got);
-    if (std::ferror(file.get()))
-        throw OutputError(path, "cannot read the file", reason());
+    if (std::ferror(file.get())) throw OutputError(path, "cannot read the file", reason());
     return content;
 }
 

@@ -28,11 +28,9 @@ constexpr std::array<Entry, 8> table = {{
 }};
 
 bool names(const std::string& material, const char* name) {
-    if (!name)
-        return false;
+    if (!name) return false;
     const std::string word = name;
-    if (material == word)
-        return true;
+    if (material == word) return true;
     return word.size() > 4 && material.find(word) != std::string::npos;
 }
 
@@ -67,8 +65,7 @@ std::vector<MaterialLook> material_looks(const std::vector<std::string>& materia
 }
 
 std::string hatch_pattern(const std::string& id, const MaterialLook& look) {
-    if (look.hatch == 0)
-        return "";
+    if (look.hatch == 0) return "";
     const std::string ink = lightness(look.colour) > 50 ? "#000000" : "#ffffff";
     const auto stroke = [&](const std::string& data) {
         return "<path d=\"" + data + "\" stroke=\"" + ink +

@@ -20,8 +20,7 @@ std::optional<Standing> read_standing(const YamlNode& node, Problems& problems) 
     const std::optional<std::string> word = read_word(node, standing_words, problems);
     if (word)
         for (std::size_t i = 0; i < standing_words.size(); ++i)
-            if (*word == standing_words[i])
-                return static_cast<Standing>(i);
+            if (*word == standing_words[i]) return static_cast<Standing>(i);
     return std::nullopt;
 }
 
@@ -37,8 +36,7 @@ const char* standing_word(Standing standing) {
 }
 
 std::optional<Parameter> ParameterReader::read(const YamlNode* node, const ParameterForm& form) {
-    if (!node)
-        return std::nullopt;
+    if (!node) return std::nullopt;
     if (!node->is_map()) {
         problems_.add(node->at, node->path,
                       fmt::format("{} stands where a cited value is due, for example {}",
@@ -63,8 +61,7 @@ std::optional<Parameter> ParameterReader::read(const YamlNode* node, const Param
     if (const YamlNode* source = map.required("source"))
         p.source = read_text(*source, problems_).value_or("");
     map.finish();
-    if (problems_.size() != before)
-        return std::nullopt;
+    if (problems_.size() != before) return std::nullopt;
     ++counts_[p.standing];
     return p;
 }

@@ -21,8 +21,7 @@ using Draw = std::function<double(Svg&, double, double)>; ///< draws at (x, y), 
 
 /// At most most_fronts of them: the first, the last, and even steps between.
 std::vector<PictureFront> chosen_fronts(const std::vector<PictureFront>& all) {
-    if (all.size() <= most_fronts)
-        return all;
+    if (all.size() <= most_fronts) return all;
     std::vector<PictureFront> chosen;
     for (std::size_t i = 0; i < most_fronts; ++i)
         chosen.push_back(all[i * (all.size() - 1) / (most_fronts - 1)]);
@@ -53,8 +52,7 @@ View make_view(const PictureContext& p) {
     if (v.width() >= landscape_from) // the panel goes below: leave it room
         v.scale_x = v.scale_z = std::min(560 / height, widest / width);
     const double stretch = std::ceil(narrowest / v.width() - 1e-9);
-    if (v.width() < 0.7 * narrowest)
-        v.scale_x *= stretch;
+    if (v.width() < 0.7 * narrowest) v.scale_x *= stretch;
     v.left = margin + axis_room;
     v.top = head;
     return v;
@@ -80,8 +78,7 @@ double draw_measured(Svg& svg, const PictureContext& p, double x, double y) {
     double at = y + heading(svg, x, y, "Measured");
     int rows = 0;
     for (const Metric& m : p.metrics.metrics) {
-        if (!m.value || m.name.find("cd_change") != std::string::npos)
-            continue;
+        if (!m.value || m.name.find("cd_change") != std::string::npos) continue;
         if (++rows > 22) {
             svg.text(x, at, "more in metrics.json",
                      {11, Anchor::start, false, "#555555", false, 0});
@@ -91,8 +88,7 @@ double draw_measured(Svg& svg, const PictureContext& p, double x, double y) {
         std::string name = m.name;
         for (std::size_t cd = name.find("cd"); cd != std::string::npos;
              cd = name.find("cd", cd + 2))
-            if (name != "cd_change")
-                name.replace(cd, 2, "CD");
+            if (name != "cd_change") name.replace(cd, 2, "CD");
         const std::string unit = m.unit == "1" ? "" : m.unit == "deg" ? "°" : " " + m.unit;
         svg.text(x, at, several ? m.feature + ": " + name : name,
                  {11.5, Anchor::start, false, "#222222", false, 0});
@@ -137,8 +133,7 @@ double draw_materials(Svg& svg, const PictureContext& p, double x, double y) {
     double at = y + heading(svg, x, y, "Materials");
     std::vector<int> shown;
     const auto show = [&](int material, const std::string& note) {
-        if (std::find(shown.begin(), shown.end(), material) != shown.end())
-            return;
+        if (std::find(shown.begin(), shown.end(), material) != shown.end()) return;
         shown.push_back(material);
         const Box swatch{x, at - 11, 26, 14};
         const std::string edge = "stroke=\"#000000\" stroke-width=\"0.6\"";
@@ -222,10 +217,8 @@ double fitting(const std::string& text, double size, bool bold, double width) {
 
 std::string subtitle(const PictureContext& p) {
     std::string text = "after " + time_text(p.last.time_s);
-    if (!p.c.chemistry.empty())
-        text += " · " + p.c.chemistry;
-    if (!p.c.domain.extruded())
-        text += " · section at y = " + rounded(section_y(p.c), 20) + " nm";
+    if (!p.c.chemistry.empty()) text += " · " + p.c.chemistry;
+    if (!p.c.domain.extruded()) text += " · section at y = " + rounded(section_y(p.c), 20) + " nm";
     return text + " · spacing " + rounded(p.c.domain.spacing) + " nm";
 }
 
@@ -276,8 +269,7 @@ std::string time_text(double seconds) {
 double round_length(double value) {
     const double power = std::pow(10.0, std::floor(std::log10(value)));
     for (const double step : {5.0, 2.0})
-        if (value / power >= step)
-            return step * power;
+        if (value / power >= step) return step * power;
     return power;
 }
 

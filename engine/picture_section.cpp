@@ -23,8 +23,7 @@ std::string solid_path(const View& v, const Section& section) {
     const double middle = 0.5 * (v.x_min + v.x_max), deep = v.z_low - (v.z_high - v.z_low);
     for (const SectionLine& line : section) {
         Points points = line.points;
-        if (points.size() < 2)
-            continue;
+        if (points.size() < 2) continue;
         const bool from_left = points.front()[0] < middle, to_left = points.back()[0] < middle;
         if (!line.closed && from_left != to_left) {
             // The front may end half a cell short of the side; the solid does not.
@@ -51,13 +50,11 @@ void draw_films(Svg& svg, const View& v, const PictureContext& p) {
         const bool topmost = &film == &p.c.films.front();
         const double top = topmost ? v.z_high : std::min(film.top, v.z_high);
         const double bottom = std::max(film.bottom, v.z_low);
-        if (top <= bottom)
-            continue;
+        if (top <= bottom) continue;
         const Box band{v.left, v.y(top), v.width(), v.y(bottom) - v.y(top)};
         const MaterialLook& look = p.looks.at(film.material);
         svg.rect(band, fill(look.colour));
-        if (look.hatch)
-            svg.rect(band, fmt::format("fill=\"url(#hatch{})\"", film.material));
+        if (look.hatch) svg.rect(band, fmt::format("fill=\"url(#hatch{})\"", film.material));
         svg.line(v.left, v.y(bottom), v.right(), v.y(bottom),
                  "stroke=\"#000000\" stroke-opacity=\"0.35\" stroke-width=\"0.6\"");
     }
@@ -75,8 +72,7 @@ Points inward(const SectionLine& line, const geometry::Surface& s) {
     }
     for (auto& d : direction) {
         const double length = std::hypot(d[0], d[1]);
-        if (length > 0)
-            d = {d[0] / length, d[1] / length};
+        if (length > 0) d = {d[0] / length, d[1] / length};
     }
     return direction;
 }
@@ -89,8 +85,7 @@ std::vector<double> at_points(const SectionLine& line, const std::vector<double>
             count[point] += 1;
         }
     for (std::size_t i = 0; i < value.size(); ++i)
-        if (count[i] > 0)
-            value[i] /= count[i];
+        if (count[i] > 0) value[i] /= count[i];
     return value;
 }
 
@@ -171,11 +166,9 @@ void draw_cd_mark(Svg& svg, const View& v, const PictureContext& p,
                   const geometry::Opening& opening, const std::string& name, double z,
                   Places& places) {
     double left = 0, right = 0;
-    if (!walls_at(p.profile, z, opening.centre_x, left, right))
-        return;
+    if (!walls_at(p.profile, z, opening.centre_x, left, right)) return;
     const std::string value = feature_metric(p, name + " cd", opening.name);
-    if (value.empty())
-        return;
+    if (value.empty()) return;
     const double a = v.x(left), b = v.x(right), y = v.y(z);
     const std::string stroke = fmt::format("stroke=\"{}\" stroke-width=\"1.2\"", mark_colour);
     svg.line(a, y, b, y, stroke);
@@ -188,8 +181,7 @@ void draw_cd_mark(Svg& svg, const View& v, const PictureContext& p,
     TextStyle style{11, Anchor::middle, true, mark_colour, true, 0};
     const std::string bare = value.substr(0, value.find(" ±"));
     for (const std::string& text : {name + " " + value + " nm", value + " nm", value, bare}) {
-        if (text_width(text, style) > b - a - 20)
-            continue;
+        if (text_width(text, style) > b - a - 20) continue;
         for (const double offset : {-6.0, 15.0})
             if (places.take(text_box(0.5 * (a + b), y + offset, text, style))) {
                 svg.text(0.5 * (a + b), y + offset, text, style);
@@ -204,11 +196,9 @@ std::optional<double> height_on(const Section& section, double x) {
     for (const SectionLine& line : section)
         for (std::size_t i = 0; i + 1 < line.points.size(); ++i) {
             const auto &p = line.points[i], &q = line.points[i + 1];
-            if ((p[0] <= x) == (q[0] <= x))
-                continue;
+            if ((p[0] <= x) == (q[0] <= x)) continue;
             const double z = p[1] + (q[1] - p[1]) * (x - p[0]) / (q[0] - p[0]);
-            if (!height || z > *height)
-                height = z;
+            if (!height || z > *height) height = z;
         }
     return height;
 }
@@ -218,8 +208,7 @@ void draw_time_labels(Svg& svg, const View& v, const PictureContext& p, double a
     for (std::size_t f = p.fronts.size() - 1;
          f-- > 1;) { // the last and the first speak for themselves
         const auto z = height_on(p.fronts[f].section, axis);
-        if (!z)
-            continue;
+        if (!z) continue;
         const std::string text = time_text(p.fronts[f].time_s);
         const TextStyle style{10, Anchor::middle, false, "#1b3266", true, 0};
         double left = 0, right = 0;
@@ -227,31 +216,26 @@ void draw_time_labels(Svg& svg, const View& v, const PictureContext& p, double a
             (right - left) * v.scale_x < text_width(text, style) + 8)
             continue;
         const double y = v.y(*z) - 4;
-        if (places.take(text_box(v.x(axis), y, text, style)))
-            svg.text(v.x(axis), y, text, style);
+        if (places.take(text_box(v.x(axis), y, text, style))) svg.text(v.x(axis), y, text, style);
     }
 }
 
 void draw_angle_labels(Svg& svg, const View& v, const PictureContext& p,
                        const geometry::Opening& opening, Places& places) {
     const Metric* depth = p.metrics.find("depth centre", opening.name);
-    if (!depth || !depth->value || *depth->value <= 0)
-        return;
+    if (!depth || !depth->value || *depth->value <= 0) return;
     const double z = -0.35 * *depth->value;
     double left = 0, right = 0;
-    if (!walls_at(p.profile, z, opening.centre_x, left, right))
-        return;
+    if (!walls_at(p.profile, z, opening.centre_x, left, right)) return;
     for (const bool on_left : {true, false}) {
         const Metric* angle =
             p.metrics.find(on_left ? "sidewall angle left" : "sidewall angle right", opening.name);
-        if (!angle || !angle->value)
-            continue;
+        if (!angle || !angle->value) continue;
         const std::string text = rounded(*angle->value, std::max(angle->sampling_error, 0.1)) + "°";
         const TextStyle style{11, on_left ? Anchor::end : Anchor::start, false, "#222222", true, 0};
         const double x = on_left ? v.x(left) - 7 : v.x(right) + 7;
         const Box box = text_box(x, v.y(z) + 4, text, style);
-        if (box.x < v.left + 2 || box.x + box.width > v.right() - 2 || !places.take(box))
-            continue;
+        if (box.x < v.left + 2 || box.x + box.width > v.right() - 2 || !places.take(box)) continue;
         svg.text(x, v.y(z) + 4, text, style);
     }
 }
@@ -311,8 +295,7 @@ void draw_scale_bars(Svg& svg, const View& v) {
     std::string text = bar_text(across);
     svg.text(x + across * v.scale_x + 8, y + 4, text,
              {11, Anchor::start, true, "#000000", false, 0});
-    if (!stretched)
-        return;
+    if (!stretched) return;
     svg.text(x, y + 22,
              fmt::format("widths drawn at {:.0f} times the scale of depths", v.scale_x / v.scale_z),
              {11, Anchor::start, true, "#7a1f5c", false, 0});
@@ -327,21 +310,18 @@ void draw_film_column(Svg& svg, const View& v, const PictureContext& p) {
     const double bar = v.right() + 8;
     for (const geometry::Film& film : p.c.films) {
         const double top = std::min(film.top, v.z_high), bottom = std::max(film.bottom, v.z_low);
-        if (top <= bottom)
-            continue;
+        if (top <= bottom) continue;
         const Box band{bar, v.y(top), 9, v.y(bottom) - v.y(top)};
         svg.rect(band, fill(p.looks.at(film.material).colour) +
                            " stroke=\"#000000\" stroke-width=\"0.5\"");
         std::string text = film.name == p.c.materials.at(film.material)
                                ? film.name
                                : film.name + ", " + p.c.materials.at(film.material);
-        if (std::isfinite(film.bottom))
-            text += " " + rounded(film.top - film.bottom, 20) + " nm";
+        if (std::isfinite(film.bottom)) text += " " + rounded(film.top - film.bottom, 20) + " nm";
         labels.push_back({band.y + 0.5 * band.height, 0, text});
     }
     const double gap = 15;
-    if (labels.size() * gap > v.height())
-        return; // too many to name: the legend has the materials
+    if (labels.size() * gap > v.height()) return; // too many to name: the legend has the materials
     double least = v.top + 8;
     for (Label& label : labels)
         least = (label.y = std::max(label.wanted, least)) + gap;

@@ -11,8 +11,7 @@ std::string describe(const Problem& problem) {
     std::string line = problem.file;
     if (problem.line > 0)
         line += ":" + std::to_string(problem.line) + ":" + std::to_string(problem.column);
-    if (!problem.path.empty())
-        line += ": " + problem.path;
+    if (!problem.path.empty()) line += ": " + problem.path;
     return line + ": " + problem.message;
 }
 
@@ -60,8 +59,7 @@ std::vector<Problem> Problems::sorted() const {
 }
 
 void Problems::throw_if_any() const {
-    if (!empty())
-        throw InputError(sorted());
+    if (!empty()) throw InputError(sorted());
 }
 
 } // namespace rille::engine

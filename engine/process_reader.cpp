@@ -89,8 +89,7 @@ void ProcessReader::read_process(const YamlNode& node, SurfaceChemistry& surface
     const YamlNode* kind = process.map.required("kind");
     const std::optional<std::string> word =
         kind ? read_word(*kind, words, problems_) : std::nullopt;
-    if (!word)
-        return;
+    if (!word) return;
     (this->*kinds[index_of(words, *word)].second)(process);
     process.map.finish();
 }
@@ -113,29 +112,24 @@ int ProcessReader::neutral(Process& p, bool& in_use) {
 
 SurfacePart ProcessReader::part(Process& p) {
     const YamlNode* node = p.map.required("on");
-    if (!node)
-        return {};
+    if (!node) return {};
     std::vector<std::string> words{"whole surface", "bare sites"};
     for (const std::string& coverage : p.surface.coverages)
         words.push_back("sites of " + coverage);
     const std::optional<std::string> word = read_word(*node, words, problems_);
     const int index = word ? index_of(words, *word) : 0;
-    if (index == 0)
-        return {SurfacePart::Kind::whole, -1};
-    if (index == 1)
-        return {SurfacePart::Kind::bare, -1};
+    if (index == 0) return {SurfacePart::Kind::whole, -1};
+    if (index == 1) return {SurfacePart::Kind::bare, -1};
     return {SurfacePart::Kind::covered, index - 2};
 }
 
 Arrhenius ProcessReader::arrhenius(const YamlNode* node, const ParameterForm& form) {
     const std::optional<Parameter> p = parameters_.read(node, form);
     Arrhenius a;
-    if (!p)
-        return a;
+    if (!p) return a;
     a.value = p->value;
     a.activation_ev = p->activation_ev.value_or(0);
-    if (p->at)
-        a.reference_k = *p->at;
+    if (p->at) a.reference_k = *p->at;
     return a;
 }
 
@@ -162,11 +156,9 @@ YieldFunction ProcessReader::named_yield(const YamlNode& node) {
         for (const YamlNode::Member& member : named_yields_->members)
             names.push_back(member.key);
     const std::optional<std::string> name = read_word(node, names, problems_);
-    if (!name)
-        return {};
+    if (!name) return {};
     const auto found = yields_.find(*name);
-    if (found != yields_.end())
-        return found->second;
+    if (found != yields_.end()) return found->second;
     const YieldFunction yield =
         read_yield(*named_yields_->find(*name), library_, parameters_, problems_)
             .value_or(YieldFunction{});
@@ -177,18 +169,15 @@ YieldFunction ProcessReader::named_yield(const YamlNode& node) {
 Tallies ProcessReader::yield_tallies(Process& p) {
     const YamlNode* node = p.map.required("yield");
     const YamlNode* ions = p.map.required("ions");
-    if (!node)
-        return {};
-    if (node->is_scalar())
-        return tallies(ions, named_yield(*node));
+    if (!node) return {};
+    if (node->is_scalar()) return tallies(ions, named_yield(*node));
     return tallies(ions,
                    read_yield(*node, library_, parameters_, problems_).value_or(YieldFunction{}));
 }
 
 Tallies ProcessReader::tallies(const YamlNode* node, const YieldFunction& yield) {
     Tallies indices;
-    if (!node)
-        return indices;
+    if (!node) return indices;
     for (const IonShare& share : read_ions(*node, names_.ions, parameters_, problems_)) {
         if (share.atoms > 1 && std::holds_alternative<YamamuraTawaraLaw>(yield.energy)) {
             problems_.add(node->at, node->path,
@@ -196,15 +185,13 @@ Tallies ProcessReader::tallies(const YamlNode* node, const YieldFunction& yield)
             continue;
         }
         const int ion = index_of(mechanism_.ions, share.ion);
-        if (ion < 0 || share.times == 0)
-            continue;
+        if (ion < 0 || share.times == 0) continue;
         const YieldFunction own = for_ion(yield, share);
         std::vector<double> key = numbers_of(own);
         key.push_back(ion);
         const auto [place, is_new] =
             tally_of_.emplace(std::move(key), static_cast<int>(mechanism_.tallies.size()));
-        if (is_new)
-            mechanism_.tallies.push_back({ion, own});
+        if (is_new) mechanism_.tallies.push_back({ion, own});
         indices.push_back(place->second);
     }
     return indices;
@@ -213,22 +200,19 @@ Tallies ProcessReader::tallies(const YamlNode* node, const YieldFunction& yield)
 IonAssistance ProcessReader::assistance(Process& p) {
     IonAssistance result;
     const YamlNode* node = p.map.optional("ion_assistance");
-    if (!node)
-        return result;
+    if (!node) return result;
     MapReader map(*node, problems_);
     const double doubles =
         parameters_.value(map.required("doubles_at"), {Dimension::ion_flux, above_zero()});
     result.tallies = tallies(map.required("ions"), {ConstantLaw{1}, FlatAngle{}, 1});
-    if (doubles > 0)
-        result.eta = 1 / doubles;
+    if (doubles > 0) result.eta = 1 / doubles;
     map.finish();
     return result;
 }
 
 int ProcessReader::film_id(const std::string& film) {
     const int known = index_of(run_materials_, film);
-    if (known >= 0)
-        return known;
+    if (known >= 0) return known;
     run_materials_.push_back(film);
     return static_cast<int>(run_materials_.size()) - 1;
 }
@@ -241,10 +225,8 @@ void ProcessReader::read_adsorption(Process& p) {
     a.sticking = parameters_.value(p.map.required("sticking"), sticking_form);
     a.atoms = parameters_.value(p.map.optional("atoms"), count_form, 1);
     a.assistance = assistance(p);
-    if (a.sticking > 0)
-        starts_.insert(a.coverage);
-    if (in_use)
-        p.add(a);
+    if (a.sticking > 0) starts_.insert(a.coverage);
+    if (in_use) p.add(a);
 }
 
 void ProcessReader::read_ion_adsorption(Process& p) {
@@ -252,8 +234,7 @@ void ProcessReader::read_ion_adsorption(Process& p) {
     a.coverage = adsorbate(p);
     const double sticking = parameters_.value(p.map.required("sticking"), sticking_form);
     a.tallies = tallies(p.map.required("ions"), {ConstantLaw{sticking}, FlatAngle{}, 1});
-    if (!a.tallies.empty())
-        p.add(a);
+    if (!a.tallies.empty()) p.add(a);
 }
 
 void ProcessReader::read_desorption(Process& p) {
@@ -267,8 +248,7 @@ void ProcessReader::read_recombination(Process& p) {
     r.neutral = neutral(p, in_use);
     r.probability = arrhenius(p.map.required("probability"), probability_form);
     r.on = part(p);
-    if (in_use)
-        p.add(r);
+    if (in_use) p.add(r);
 }
 
 void ProcessReader::read_ion_enhanced_etching(Process& p) {
@@ -276,16 +256,14 @@ void ProcessReader::read_ion_enhanced_etching(Process& p) {
     e.coverage = adsorbate(p);
     e.atoms = parameters_.value(p.map.required("atoms_per_unit"), count_form, 1);
     e.tallies = yield_tallies(p);
-    if (!e.tallies.empty())
-        p.add(e);
+    if (!e.tallies.empty()) p.add(e);
 }
 
 void ProcessReader::read_physical_sputtering(Process& p) {
     PhysicalSputtering s;
     s.on = part(p);
     s.tallies = yield_tallies(p);
-    if (!s.tallies.empty())
-        p.add(s);
+    if (!s.tallies.empty()) p.add(s);
 }
 
 void ProcessReader::read_spontaneous_etching(Process& p) {
@@ -295,8 +273,7 @@ void ProcessReader::read_spontaneous_etching(Process& p) {
     s.probability = arrhenius(p.map.required("probability"), probability_form);
     s.atoms = parameters_.value(p.map.required("atoms_per_unit"), count_form, 1);
     s.on = part(p);
-    if (in_use)
-        p.add(s);
+    if (in_use) p.add(s);
 }
 
 void ProcessReader::read_thermal_etching(Process& p) {
@@ -311,8 +288,7 @@ void ProcessReader::read_ion_removal(Process& p) {
     IonRemoval r;
     r.coverage = adsorbate(p);
     r.tallies = yield_tallies(p);
-    if (!r.tallies.empty())
-        p.add(r);
+    if (!r.tallies.empty()) p.add(r);
 }
 
 void ProcessReader::read_neutral_removal(Process& p) {
@@ -322,8 +298,7 @@ void ProcessReader::read_neutral_removal(Process& p) {
     r.neutral = neutral(p, in_use);
     r.probability = arrhenius(p.map.required("probability"), probability_form);
     r.atoms = parameters_.value(p.map.optional("atoms"), count_form, 1);
-    if (in_use)
-        p.add(r);
+    if (in_use) p.add(r);
 }
 
 void ProcessReader::read_deposition(Process& p) {
@@ -345,11 +320,9 @@ void ProcessReader::read_deposition(Process& p) {
             problems_.add(p.node.at, p.node.path,
                           "a film needs an adsorption of its adsorbate first, written above it");
     }
-    if (!in_use || name.empty())
-        return;
+    if (!in_use || name.empty()) return;
     d.film_material = film_id(name);
-    if (const MaterialData* data = library_.material(name))
-        d.film_density = data->density;
+    if (const MaterialData* data = library_.material(name)) d.film_density = data->density;
     p.add(d);
 }
 

@@ -27,8 +27,7 @@ double student_factor(double batches) {
 /// 95 % sampling error of every element's position; empty where nothing is sampled.
 std::vector<double> element_errors(const SurfaceState& state) {
     const auto batches = static_cast<double>(state.displacement.size());
-    if (batches < 2)
-        return {};
+    if (batches < 2) return {};
     const double factor = student_factor(batches);
     std::vector<double> errors(state.surface.size(), 0.0);
     for (const auto& batch : state.displacement)
@@ -41,8 +40,7 @@ std::vector<double> element_errors(const SurfaceState& state) {
 
 std::string name_at(const std::vector<std::string>& names, const std::vector<int>& index,
                     std::size_t element) {
-    if (index.empty())
-        return "";
+    if (index.empty()) return "";
     const int i = index[element];
     return i >= 0 && i < static_cast<int>(names.size()) ? csv_field(names[i]) : "";
 }
@@ -66,8 +64,7 @@ std::string place(const Case& c, const SurfaceState& state, const std::vector<do
     const geometry::Vec3 p = s.centre[e], n = s.normal[e];
     std::string text = shortest(p.x);
     const auto add = [&](double value) { text += "," + shortest(value); };
-    if (!c.domain.extruded())
-        add(p.y);
+    if (!c.domain.extruded()) add(p.y);
     add(p.z);
     if (c.domain.extruded()) {
         add(arc[e]);
@@ -85,8 +82,7 @@ std::string place(const Case& c, const SurfaceState& state, const std::vector<do
 
 double sampling_error(const std::vector<double>& batch_deviation) {
     const double batches = static_cast<double>(batch_deviation.size());
-    if (batches < 2)
-        return 0;
+    if (batches < 2) return 0;
     double sum = 0;
     for (const double w : batch_deviation)
         sum += w * w;
@@ -98,8 +94,7 @@ std::vector<double> arc_length(const geometry::Surface& s) {
     double end = 0;
     for (std::size_t e = 0; e < s.size(); ++e) {
         // Elements of a chain are stored in walking order.
-        if (e > 0 && !s.chain.empty() && s.chain[e] != s.chain[e - 1])
-            end = 0;
+        if (e > 0 && !s.chain.empty() && s.chain[e] != s.chain[e - 1]) end = 0;
         arc[e] = end + 0.5 * s.area[e];
         end += s.area[e];
     }
@@ -120,11 +115,9 @@ std::string profile_csv(const Case& c, const SurfaceState& state) {
         for (const auto& thickness : state.grown.thickness)
             text += "," + shortest(thickness[e]);
         text += ",";
-        if (!state.rate.empty())
-            text += shortest(state.rate[e] * seconds_per_minute);
+        if (!state.rate.empty()) text += shortest(state.rate[e] * seconds_per_minute);
         text += ",";
-        if (!errors.empty())
-            text += shortest(errors[e]);
+        if (!errors.empty()) text += shortest(errors[e]);
         for (const NamedField& field : state.fields)
             text += "," + shortest(field.value[e]);
         text += "\n";

@@ -33,8 +33,7 @@ Rule& Rule::items(std::size_t least, std::size_t most) {
 
 const Rule* Rule::member(const std::string& name) const {
     for (const Rule& rule : members)
-        if (rule.key == name)
-            return &rule;
+        if (rule.key == name) return &rule;
     return nullptr;
 }
 

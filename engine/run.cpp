@@ -57,15 +57,17 @@ void note_health(const Case& the_case, const Simulation& simulation, RunRecord& 
     record.lost_rays = health.lost_rays;
     record.redistance_shift = health.largest_redistance_shift;
     const Timings& t = simulation.timings();
-    record.timings = {{"contour", t.extract}, {"ray caster", t.cast}, {"ions, neutrals, kinetics", t.fluxes},
-                      {"advance", t.advance}, {"carry", t.carry}};
+    record.timings = {{"contour", t.extract},
+                      {"ray caster", t.cast},
+                      {"ions, neutrals, kinetics", t.fluxes},
+                      {"advance", t.advance},
+                      {"carry", t.carry}};
     for (const auto& part : simulation.isolated_parts())
-        record.warnings.push_back(
-            (part.kind == geometry::IsolatedPart::Kind::closed_void
-                 ? std::string("a void has closed off")
-                 : std::string("a piece of solid has come off")) +
-            " near x = " + std::to_string(part.centre.x) + " nm, z = " +
-            std::to_string(part.centre.z) + " nm");
+        record.warnings.push_back((part.kind == geometry::IsolatedPart::Kind::closed_void
+                                       ? std::string("a void has closed off")
+                                       : std::string("a piece of solid has come off")) +
+                                  " near x = " + std::to_string(part.centre.x) +
+                                  " nm, z = " + std::to_string(part.centre.z) + " nm");
     for (const std::string& warning : charging_warnings(the_case))
         record.warnings.push_back(warning);
 }
@@ -85,9 +87,9 @@ double expected_duration(const Case& the_case) {
         if (step.end.kind == StepEnd::Kind::share_of_step)
             time = step.end.share * duration[step.end.of_step];
         else if (step.end.kind != StepEnd::Kind::time) {
-            const auto film = std::find_if(
-                the_case.films.begin(), the_case.films.end(),
-                [&](const geometry::Film& f) { return f.name == step.end.film; });
+            const auto film =
+                std::find_if(the_case.films.begin(), the_case.films.end(),
+                             [&](const geometry::Film& f) { return f.name == step.end.film; });
             time = std::min(step.no_longer_than_s, field.time_to(film->top, step.plasma));
         }
         field.advance(time, step.plasma);

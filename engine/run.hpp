@@ -13,7 +13,7 @@ namespace rille::engine {
 
 /// Told as the run goes on. Calls come from the run's own thread, in order.
 class RunObserver {
-  public:
+public:
     virtual ~RunObserver() = default;
     /// After each refresh. `share` of the whole run that is done, in [0, 1], as far as can be told.
     virtual void progressed(const Simulation&, const HistoryRow&, double share) = 0;

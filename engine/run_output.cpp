@@ -39,14 +39,12 @@ void RunOutput::add_frame(const SurfaceState& state) {
 }
 
 Metrics RunOutput::finish(const RunResult& result) {
-    if (series_.empty() || result.last.time_s > series_.back().time_s)
-        add_frame(result.last);
+    if (series_.empty() || result.last.time_s > series_.back().time_s) add_frame(result.last);
     folder_.write(output_names::history, history_csv(case_, result.history));
     folder_.write(output_names::profile, profile_csv(case_, result.last));
     const Metrics metrics = measure(case_, result.last);
     folder_.write(output_names::metrics, json_text(metrics_json(case_, metrics)));
-    if (result.write_level_set)
-        folder_.write_with(output_names::level_set, result.write_level_set);
+    if (result.write_level_set) folder_.write_with(output_names::level_set, result.write_level_set);
     const std::string picture = picture_svg(case_, fronts_, result.last, metrics);
     folder_.write(output_names::picture_svg, picture);
     folder_.write(output_names::picture_png, png_of(picture, png_scale));
@@ -55,8 +53,7 @@ Metrics RunOutput::finish(const RunResult& result) {
                  output_names::record);
     files.erase(std::unique(files.begin(), files.end()), files.end());
     RunRecord record = result.record;
-    if (record.peak_memory_bytes == 0)
-        record.peak_memory_bytes = peak_memory_bytes();
+    if (record.peak_memory_bytes == 0) record.peak_memory_bytes = peak_memory_bytes();
     folder_.write(output_names::record, json_text(record_json(case_, record, files)));
     return metrics;
 }

@@ -42,8 +42,7 @@ json steps_json(const std::vector<StepOutcome>& steps) {
 json unused_json(const Case& c) {
     json unused = json::object();
     for (const auto& [name, plasma] : c.plasmas)
-        if (!plasma.unused.empty())
-            unused[name] = plasma.unused;
+        if (!plasma.unused.empty()) unused[name] = plasma.unused;
     return unused;
 }
 
@@ -108,18 +107,12 @@ std::vector<std::string> cpu_features() {
     std::vector<std::string> found;
 #if defined(__x86_64__)
     __builtin_cpu_init();
-    if (__builtin_cpu_supports("sse4.2"))
-        found.emplace_back("sse4.2");
-    if (__builtin_cpu_supports("avx"))
-        found.emplace_back("avx");
-    if (__builtin_cpu_supports("fma"))
-        found.emplace_back("fma");
-    if (__builtin_cpu_supports("fma4"))
-        found.emplace_back("fma4");
-    if (__builtin_cpu_supports("avx2"))
-        found.emplace_back("avx2");
-    if (__builtin_cpu_supports("avx512f"))
-        found.emplace_back("avx512f");
+    if (__builtin_cpu_supports("sse4.2")) found.emplace_back("sse4.2");
+    if (__builtin_cpu_supports("avx")) found.emplace_back("avx");
+    if (__builtin_cpu_supports("fma")) found.emplace_back("fma");
+    if (__builtin_cpu_supports("fma4")) found.emplace_back("fma4");
+    if (__builtin_cpu_supports("avx2")) found.emplace_back("avx2");
+    if (__builtin_cpu_supports("avx512f")) found.emplace_back("avx512f");
 #endif
     return found;
 }
@@ -134,8 +127,7 @@ std::string content_hash(const std::string& text) {
 
 std::uint64_t peak_memory_bytes() {
     rusage usage{};
-    if (getrusage(RUSAGE_SELF, &usage) != 0)
-        return 0;
+    if (getrusage(RUSAGE_SELF, &usage) != 0) return 0;
     return static_cast<std::uint64_t>(usage.ru_maxrss) * 1024; // Linux counts in KiB
 }
 

@@ -21,8 +21,7 @@ std::array<double, 2> xz(const Vec3& p) {
 /// Does element e go on where its predecessor ends (and not on the other side of the period)?
 bool joined(const Surface& s, int e) {
     const int before = s.previous[e];
-    if (before < 0)
-        return false;
+    if (before < 0) return false;
     const Vec3 gap = s.vertices[s.corners[e][0]] - s.vertices[s.corners[before][1]];
     return gap.length() <= 1e-9 * (1 + s.area[e]);
 }
@@ -37,8 +36,7 @@ SectionLine walk(const Surface& s, int start, std::vector<char>& seen) {
         line.points.push_back(xz(s.vertices[s.corners[e][1]]));
         const int after = s.next[e];
         line.closed = after == start && joined(s, start);
-        if (after < 0 || seen[after] || !joined(s, after))
-            return line;
+        if (after < 0 || seen[after] || !joined(s, after)) return line;
         e = after;
     }
 }
@@ -48,11 +46,9 @@ Section chains(const Surface& s) {
     const int n = static_cast<int>(s.size());
     std::vector<char> seen(n, 0);
     for (int e = 0; e < n; ++e)
-        if (!joined(s, e))
-            section.push_back(walk(s, e, seen));
+        if (!joined(s, e)) section.push_back(walk(s, e, seen));
     for (int e = 0; e < n; ++e)
-        if (!seen[e])
-            section.push_back(walk(s, e, seen));
+        if (!seen[e]) section.push_back(walk(s, e, seen));
     return section;
 }
 
@@ -67,16 +63,13 @@ public:
         for (std::size_t e = 0; e < s_.size(); ++e) {
             const auto& c = s_.corners[e];
             cut_triangle(static_cast<int>(e), c[0], c[1], c[2]);
-            if (c[3] != c[2])
-                cut_triangle(static_cast<int>(e), c[0], c[2], c[3]);
+            if (c[3] != c[2]) cut_triangle(static_cast<int>(e), c[0], c[2], c[3]);
         }
         Section section;
         for (std::size_t p = 0; p < links_.size(); ++p)
-            if (links_[p].size() == 1 && !done(p))
-                section.push_back(follow(p));
+            if (links_[p].size() == 1 && !done(p)) section.push_back(follow(p));
         for (std::size_t p = 0; p < links_.size(); ++p)
-            if (!done(p))
-                section.push_back(follow(p));
+            if (!done(p)) section.push_back(follow(p));
         return section;
     }
 
@@ -94,8 +87,7 @@ private:
     }
 
     std::size_t point(int a, int b) {
-        if (a > b)
-            std::swap(a, b);
+        if (a > b) std::swap(a, b);
         const std::uint64_t key = (static_cast<std::uint64_t>(a) << 32) | static_cast<unsigned>(b);
         const auto [at, fresh] = index_.try_emplace(key, points_.size());
         if (fresh) {
@@ -111,10 +103,8 @@ private:
     void cut_triangle(int element, int a, int b, int c) {
         std::vector<std::size_t> ends;
         for (const auto& [p, q] : {std::pair(a, b), std::pair(b, c), std::pair(c, a)})
-            if (above(p) != above(q))
-                ends.push_back(point(p, q));
-        if (ends.size() != 2)
-            return;
+            if (above(p) != above(q)) ends.push_back(point(p, q));
+        if (ends.size() != 2) return;
         links_[ends[0]].push_back({ends[1], element});
         links_[ends[1]].push_back({ends[0], element});
     }
@@ -126,8 +116,7 @@ private:
         while (true) {
             const auto link = std::find_if(links_[at].begin(), links_[at].end(),
                                            [](const Link& l) { return !l.used; });
-            if (link == links_[at].end())
-                break;
+            if (link == links_[at].end()) break;
             link->used = true;
             const std::size_t to = link->other;
             for (Link& back : links_[to])
@@ -155,8 +144,7 @@ private:
 } // namespace
 
 Section vertical_section(const geometry::Domain& domain, const Surface& s, double y) {
-    if (domain.extruded())
-        return chains(s);
+    if (domain.extruded()) return chains(s);
     return Cutter(s, 1, y, 0, 2).cut();
 }
 
@@ -171,8 +159,7 @@ bool walls_at(const Section& section, double height, double x, double& left, dou
     for (const SectionLine& line : section)
         for (std::size_t i = 0; i + 1 < line.points.size(); ++i) {
             const auto &p = line.points[i], &q = line.points[i + 1];
-            if ((p[1] >= height) == (q[1] >= height))
-                continue;
+            if ((p[1] >= height) == (q[1] >= height)) continue;
             const double cut = p[0] + (q[0] - p[0]) * (height - p[1]) / (q[1] - p[1]);
             if (cut <= x)
                 left = std::max(left, cut);

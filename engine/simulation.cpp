@@ -20,19 +20,19 @@ namespace {
 using geometry::Surface;
 using geometry::Vec3;
 
-constexpr double refresh_move = 0.5;      // [cells] arrivals are renewed after this movement
-constexpr double lost_ray_share = 1e-5;   // a run with more lost rays than this is not trusted
-constexpr double no_film_nm = 1e-9;       // thinner grown film counts as none
+constexpr double refresh_move = 0.5;    // [cells] arrivals are renewed after this movement
+constexpr double lost_ray_share = 1e-5; // a run with more lost rays than this is not trusted
+constexpr double no_film_nm = 1e-9;     // thinner grown film counts as none
 
 /// Adds the wall time of its scope to a counter.
 class Stopwatch {
-  public:
+public:
     explicit Stopwatch(double& total) : total_(total), start_(Clock::now()) {}
     ~Stopwatch() { total_ += std::chrono::duration<double>(Clock::now() - start_).count(); }
     Stopwatch(const Stopwatch&) = delete;
     Stopwatch& operator=(const Stopwatch&) = delete;
 
-  private:
+private:
     using Clock = std::chrono::steady_clock;
     double& total_;
     Clock::time_point start_;
@@ -72,8 +72,8 @@ double highest(const Surface& surface) {
 
 Simulation::Simulation(const Case& the_case)
     : case_(the_case), stack_(the_case.films), front_(initial_front(the_case)),
-      surface_(geometry::extract_surface(front_)),
-      films_(initial_films(the_case, surface_.size())), open_field_(the_case) {
+      surface_(geometry::extract_surface(front_)), films_(initial_films(the_case, surface_.size())),
+      open_field_(the_case) {
     for (int b = 0; b < fluxes::batches; ++b)
         error_fields_.push_back({"displacement error " + std::to_string(b),
                                  geometry::Carry::intensive,
@@ -125,8 +125,8 @@ fluxes::SurfaceStep Simulation::solve(const Surface& surface, const geometry::Gr
     std::unique_ptr<geometry::RayCaster> caster;
     {
         const Stopwatch watch(timings_.cast);
-        caster = std::make_unique<geometry::RayCaster>(
-            case_.domain, surface, highest(surface) + 2 * case_.domain.spacing);
+        caster = std::make_unique<geometry::RayCaster>(case_.domain, surface,
+                                                       highest(surface) + 2 * case_.domain.spacing);
     }
     const Stopwatch watch(timings_.fluxes);
     const std::string& plasma =
@@ -136,14 +136,13 @@ fluxes::SurfaceStep Simulation::solve(const Surface& surface, const geometry::Gr
     sampling.ions_per_species = case_.ions_per_species;
     sampling.seed = case_.seed;
     sampling.refresh = refresh_++;
-    auto solved = fluxes::solve_surface(case_.domain, surface, *caster,
-                                        materials_in_reach(surface, films), case_.mechanism,
-                                        case_.reflection,
-                                        sources_of(case_, case_.plasmas.at(plasma)), sampling,
-                                        previous);
+    auto solved = fluxes::solve_surface(
+        case_.domain, surface, *caster, materials_in_reach(surface, films), case_.mechanism,
+        case_.reflection, sources_of(case_, case_.plasmas.at(plasma)), sampling, previous);
     health_.rays += caster->traced();
     health_.lost_rays += caster->lost();
-    health_.largest_sticking_residual = std::max(health_.largest_sticking_residual, solved.residual);
+    health_.largest_sticking_residual =
+        std::max(health_.largest_sticking_residual, solved.residual);
     ++health_.refreshes;
     if (health_.lost_rays > 100 && health_.lost_rays > lost_ray_share * health_.rays)
         throw NumericsError(std::to_string(health_.lost_rays) + " of " +
@@ -197,8 +196,8 @@ void Simulation::average_rates(fluxes::SurfaceStep& now, const fluxes::SurfaceSt
             const int other = later.rates.row(there, now.rates.material[r]);
             if (other < 0) continue;
             for (std::size_t k = 0; k < angles; ++k)
-                now.rates.table[r * angles + k] = 0.5 * (now.rates.table[r * angles + k] +
-                                                         later.rates.table[other * angles + k]);
+                now.rates.table[r * angles + k] =
+                    0.5 * (now.rates.table[r * angles + k] + later.rates.table[other * angles + k]);
         }
         for (std::size_t b = 0; b < now.rate_batch.size(); ++b)
             now.rate_batch[b][e] = 0.5 * (now.rate_batch[b][e] + later.rate_batch[b][there]);

@@ -32,12 +32,13 @@ struct Health {
 /// A run in progress: the front, what rides on it, and where the recipe stands. One call of step()
 /// is one refresh of the arrivals.
 class Simulation {
-  public:
+public:
     explicit Simulation(const Case&);
 
     bool finished() const { return step_index_ >= case_.steps.size(); }
-    /// Advances by one refresh, to the end of the recipe step at most, and not beyond `no_later_than`
-    /// [s of simulated time] (so that outputs fall on their times). Throws NumericsError.
+    /// Advances by one refresh, to the end of the recipe step at most, and not beyond
+    /// `no_later_than` [s of simulated time] (so that outputs fall on their times). Throws
+    /// NumericsError.
     void step(double no_later_than_s);
 
     double time_s() const { return time_s_; }
@@ -62,7 +63,7 @@ class Simulation {
     /// Share of the present recipe step that is done, in [0, 1], as far as can be told.
     double step_progress() const;
 
-  private:
+private:
     /// The state after a tried advance.
     struct Trial {
         geometry::Front front;

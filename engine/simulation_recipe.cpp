@@ -40,11 +40,13 @@ void Simulation::begin_step() {
 double Simulation::step_end_time() const {
     const StepEnd& end = recipe().end;
     switch (end.kind) {
-    case StepEnd::Kind::time: return step_start_s_ + end.time_s;
+    case StepEnd::Kind::time:
+        return step_start_s_ + end.time_s;
     case StepEnd::Kind::share_of_step:
         return step_start_s_ + end.share * duration_s_.at(end.of_step);
     case StepEnd::Kind::reaches:
-    case StepEnd::Kind::cleared: break;
+    case StepEnd::Kind::cleared:
+        break;
     }
     return step_start_s_ + recipe().no_longer_than_s;
 }
@@ -66,8 +68,10 @@ void Simulation::step(double no_later_than_s) {
         accept(std::move(trial), present_);
         if (met) return end_step(true);
     }
-    if (by_open_field(end) && time_s_ >= open_field_time - rounding) end_step(true);
-    else if (time_s_ >= last - rounding) end_step(!by_profile(end) && !by_open_field(end));
+    if (by_open_field(end) && time_s_ >= open_field_time - rounding)
+        end_step(true);
+    else if (time_s_ >= last - rounding)
+        end_step(!by_profile(end) && !by_open_field(end));
 }
 
 void Simulation::end_step(bool reached) {
@@ -91,7 +95,8 @@ void Simulation::end_step(bool reached) {
 
 double Simulation::step_progress() const {
     if (finished()) return 1.0;
-    const double by_time = (time_s_ - step_start_s_) / std::max(1e-300, step_end_time() - step_start_s_);
+    const double by_time =
+        (time_s_ - step_start_s_) / std::max(1e-300, step_end_time() - step_start_s_);
     if (!by_profile(recipe().end) || !(start_distance_ > 0)) return std::clamp(by_time, 0.0, 1.0);
     const double by_depth = 1.0 - distance_to_goal(surface_) / start_distance_;
     return std::clamp(std::max(by_time, by_depth), 0.0, 1.0);

@@ -33,8 +33,7 @@ void Svg::text(double x, double y, const std::string& content, const TextStyle& 
     std::string common = "<text x=\"" + px(x) + "\" y=\"" + px(y) + "\" font-size=\"" +
                          px(style.size) + "\" text-anchor=\"" +
                          anchors[static_cast<int>(style.anchor)] + "\"";
-    if (style.bold)
-        common += " font-weight=\"bold\"";
+    if (style.bold) common += " font-weight=\"bold\"";
     if (style.rotate != 0)
         common += " transform=\"rotate(" + px(style.rotate) + " " + px(x) + " " + px(y) + ")\"";
     const std::string end = ">" + escaped(content) + "</text>\n";
@@ -91,8 +90,7 @@ std::string escaped(const std::string& text) {
 double text_width(const std::string& content, const TextStyle& style) {
     double em = 0; // DejaVu Sans: digits 0.636 em, lower case 0.6 on average, narrow signs 0.35
     for (const char c : content) {
-        if ((static_cast<unsigned char>(c) & 0xC0) == 0x80)
-            continue;
+        if ((static_cast<unsigned char>(c) & 0xC0) == 0x80) continue;
         em += c == ' ' || c == '.' || c == ',' || c == ':' || c == 'i' || c == 'l' ? 0.33 : 0.64;
     }
     return em * style.size * (style.bold ? 1.1 : 1.0);

@@ -18,8 +18,7 @@ std::string weak_parameters(const Case& c) {
     std::string text;
     const auto add = [&](fluxes::Standing standing, const char* name) {
         const auto found = c.standing.find(standing);
-        if (found == c.standing.end() || found->second == 0)
-            return;
+        if (found == c.standing.end() || found->second == 0) return;
         text += fmt::format("{}{} {}", text.empty() ? "" : " and ", found->second, name);
     };
     add(fluxes::Standing::illustrative, "illustrative");
@@ -31,8 +30,7 @@ std::string range_text(const Target& target, const std::string& unit) {
     const std::string suffix = unit == "1" ? "" : " " + unit;
     if (target.at_least && target.at_most)
         return rounded(*target.at_least) + " to " + rounded(*target.at_most) + suffix;
-    if (target.at_least)
-        return "at least " + rounded(*target.at_least) + suffix;
+    if (target.at_least) return "at least " + rounded(*target.at_least) + suffix;
     return "at most " + (target.at_most ? rounded(*target.at_most) : "?") + suffix;
 }
 
@@ -46,8 +44,7 @@ TargetVerdict judge_metric(const Case& c, const Target& target, const Metric& me
         result.by_numbers = judge(*metric.value, metric.sampling_error, target);
         result.reason = with_error(*metric.value, metric.sampling_error) +
                         (metric.unit == "1" ? "" : " " + metric.unit);
-        if (result.by_numbers == Verdict::undecided)
-            result.reason += " straddles the limit";
+        if (result.by_numbers == Verdict::undecided) result.reason += " straddles the limit";
     } else {
         result.by_numbers = Verdict::missed;
         result.reason = "no such value: " + metric.note;
@@ -110,8 +107,7 @@ const char* verdict_name(Verdict verdict) {
 }
 
 Verdict judge(double value, double error, const Target& target) {
-    if (!std::isfinite(value) || !std::isfinite(error))
-        return Verdict::undecided;
+    if (!std::isfinite(value) || !std::isfinite(error)) return Verdict::undecided;
     const double low = value - error, high = value + error;
     if ((target.at_least && high < *target.at_least) || (target.at_most && low > *target.at_most))
         return Verdict::missed;

@@ -154,8 +154,7 @@ constexpr std::array<Hint, 24> hints = {{
 
 std::string foreign_unit(const std::string& text, const std::string& unit, Dimension due) {
     for (const Hint& hint : hints)
-        if (hint.dimension == due && unit == hint.unit)
-            return hint.sentence;
+        if (hint.dimension == due && unit == hint.unit) return hint.sentence;
     std::vector<std::string> known;
     for (const UnitDefinition& own : units_of(due))
         known.emplace_back(own.text);
@@ -180,17 +179,14 @@ std::size_t number_length(const std::string& text) {
     if (at < text.size() && text[at] == '.')
         for (++at; at < text.size() && is_digit(text[at]); ++at)
             ++digits;
-    if (digits == 0)
-        return 0;
+    if (digits == 0) return 0;
     if (at < text.size() && (text[at] == 'e' || text[at] == 'E')) {
         std::size_t power = at + 1;
-        if (power < text.size() && (text[power] == '+' || text[power] == '-'))
-            ++power;
+        if (power < text.size() && (text[power] == '+' || text[power] == '-')) ++power;
         const std::size_t first = power;
         while (power < text.size() && is_digit(text[power]))
             ++power;
-        if (power > first)
-            at = power;
+        if (power > first) at = power;
     }
     return at;
 }
@@ -203,8 +199,7 @@ std::string number_trap(const std::string& text, const std::string& number,
         if (low.rfind(word, 0) == 0 &&
             (low.size() == std::string(word).size() || low[std::string(word).size()] == ' '))
             return quoted(text) + " is not a finite number";
-    if (number.empty())
-        return quoted(text) + " is not a number";
+    if (number.empty()) return quoted(text) + " is not a number";
     if (number == "0" && !rest.empty() && (rest[0] == 'x' || rest[0] == 'o'))
         return quoted(text) + ": write the number in decimal";
     if (!rest.empty() && rest[0] == ':' && rest.size() > 1 && is_digit(rest[1]))
@@ -243,8 +238,7 @@ std::string unit_list(Dimension dimension) {
             ascii = ascii && static_cast<unsigned char>(c) < 0x80;
         const bool powers =
             text.find("-2") != std::string::npos || text.find("-3") != std::string::npos;
-        if (ascii && !powers)
-            plain.push_back(text);
+        if (ascii && !powers) plain.push_back(text);
     }
     return listed(plain);
 }
@@ -255,8 +249,7 @@ NumberText split_number(const std::string& raw) {
     NumberText result;
     const std::string number = text.substr(0, length), rest = text.substr(length);
     result.error = number_trap(text, number, rest);
-    if (!result.error.empty())
-        return result;
+    if (!result.error.empty()) return result;
     result.unit = trimmed(rest);
     const char* first = number.data() + (number[0] == '+');
     const auto read = std::from_chars(first, number.data() + number.size(), result.value);
@@ -275,8 +268,7 @@ QuantityText parse_quantity(const std::string& text, Dimension dimension) {
         return {0, fmt::format("{} has no unit; {} is due, {}", quoted(trimmed(text)),
                                noun(dimension), form)};
     for (const UnitDefinition& unit : units_of(dimension))
-        if (number.unit == unit.text)
-            return {unit.factor * (number.value + unit.offset), ""};
+        if (number.unit == unit.text) return {unit.factor * (number.value + unit.offset), ""};
     return {0, fmt::format("{}; {}", foreign_unit(trimmed(text), number.unit, dimension), form)};
 }
 

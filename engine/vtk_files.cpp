@@ -35,8 +35,7 @@ std::string encoded(const std::vector<T>& values) {
     const std::uint64_t bytes = values.size() * sizeof(T);
     std::vector<guchar> block(sizeof bytes + bytes);
     std::memcpy(block.data(), &bytes, sizeof bytes);
-    if (bytes)
-        std::memcpy(block.data() + sizeof bytes, values.data(), bytes);
+    if (bytes) std::memcpy(block.data() + sizeof bytes, values.data(), bytes);
     const std::unique_ptr<gchar, void (*)(void*)> text(g_base64_encode(block.data(), block.size()),
                                                        &g_free);
     return text.get();
@@ -58,8 +57,7 @@ std::string vectors(const std::string& name, const std::vector<geometry::Vec3>& 
 }
 
 int corner_count(const std::array<int, 4>& corners) {
-    if (corners[2] < 0)
-        return 2;
+    if (corners[2] < 0) return 2;
     return corners[3] == corners[2] ? 3 : 4;
 }
 
@@ -77,14 +75,10 @@ std::string cell_data(const Case& c, const SurfaceState& state) {
     const geometry::Surface& s = state.surface;
     std::string text = vectors("normal", s.normal);
     text += array(c.domain.extruded() ? "length_nm" : "area_nm2", s.area);
-    if (!s.chain.empty())
-        text += array("chain", s.chain);
-    if (!s.next.empty())
-        text += array("next", s.next) + array("previous", s.previous);
-    if (!state.material.empty())
-        text += array("material", state.material);
-    if (!state.film.empty())
-        text += array("film", state.film);
+    if (!s.chain.empty()) text += array("chain", s.chain);
+    if (!s.next.empty()) text += array("next", s.next) + array("previous", s.previous);
+    if (!state.material.empty()) text += array("material", state.material);
+    if (!state.film.empty()) text += array("film", state.film);
     for (std::size_t f = 0; f < state.grown.material.size(); ++f)
         text += array("grown_" + column_name(c.materials.at(state.grown.material[f])) + "_nm",
                       state.grown.thickness[f]);

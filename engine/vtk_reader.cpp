@@ -34,14 +34,12 @@ std::vector<T> decoded(const Tree& array) {
     const std::unique_ptr<guchar, void (*)(void*)> block(g_base64_decode(text.c_str(), &size),
                                                          &g_free);
     std::uint64_t bytes = 0;
-    if (size < sizeof bytes)
-        throw std::runtime_error("an array is cut short");
+    if (size < sizeof bytes) throw std::runtime_error("an array is cut short");
     std::memcpy(&bytes, block.get(), sizeof bytes);
     if (bytes != size - sizeof bytes || bytes % sizeof(T) != 0)
         throw std::runtime_error("an array has the wrong length");
     std::vector<T> values(bytes / sizeof(T));
-    if (bytes)
-        std::memcpy(values.data(), block.get() + sizeof bytes, bytes);
+    if (bytes) std::memcpy(values.data(), block.get() + sizeof bytes, bytes);
     return values;
 }
 
@@ -74,8 +72,7 @@ void read_corners(const Tree& group, geometry::Surface& s) {
                 throw std::runtime_error("a cell names a point that does not exist");
             corners[i] = static_cast<int>(vertex);
         }
-        if (n == 3)
-            corners[3] = corners[2];
+        if (n == 3) corners[3] = corners[2];
         s.corners.push_back(corners);
         geometry::Vec3 sum(0, 0, 0);
         for (std::int64_t i = 0; i < n; ++i)
@@ -87,8 +84,7 @@ void read_corners(const Tree& group, geometry::Surface& s) {
 
 int material_of(const Case& c, const std::string& column) {
     for (std::size_t m = 0; m < c.materials.size(); ++m)
-        if (column_name(c.materials[m]) == column)
-            return static_cast<int>(m);
+        if (column_name(c.materials[m]) == column) return static_cast<int>(m);
     throw std::runtime_error("grown film of a material that the case does not have: " + column);
 }
 

@@ -32,8 +32,7 @@ std::string closest(const std::string& word, const std::vector<std::string>& can
         const int distance = edit_distance(asked, lower_case(candidate));
         const int allowed =
             std::max(1, static_cast<int>(std::min(asked.size(), candidate.size()) + 1) / 3);
-        if (candidate.size() < 2 && distance > 0)
-            continue;
+        if (candidate.size() < 2 && distance > 0) continue;
         if (distance <= allowed && (best.empty() || distance < least)) {
             best = candidate;
             least = distance;
@@ -53,8 +52,7 @@ std::string quoted(const std::string& text) {
     std::size_t used = 0;
     for (const char c : text) {
         const bool inside_character = (static_cast<unsigned char>(c) & 0xc0u) == 0x80u;
-        if (++used > 60 && !inside_character)
-            return result + "...\"";
+        if (++used > 60 && !inside_character) return result + "...\"";
         if (c == '\n')
             result += "\\n";
         else if (c == '\t')
@@ -74,23 +72,20 @@ std::string listed(const std::vector<std::string>& words, std::size_t most) {
         const bool last = w + 1 == words.size() && w > 0;
         result += (w == 0 ? "" : last ? " or " : ", ") + words[w];
     }
-    if (shown < words.size())
-        result += " and " + std::to_string(words.size() - shown) + " more";
+    if (shown < words.size()) result += " and " + std::to_string(words.size() - shown) + " more";
     return result;
 }
 
 std::string trimmed(const std::string& text) {
     const char* blank = " \t\r\n";
     const std::size_t first = text.find_first_not_of(blank);
-    if (first == std::string::npos)
-        return "";
+    if (first == std::string::npos) return "";
     return text.substr(first, text.find_last_not_of(blank) - first + 1);
 }
 
 std::string lower_case(std::string text) {
     for (char& c : text)
-        if (c >= 'A' && c <= 'Z')
-            c = static_cast<char>(c - 'A' + 'a');
+        if (c >= 'A' && c <= 'Z') c = static_cast<char>(c - 'A' + 'a');
     return text;
 }
 

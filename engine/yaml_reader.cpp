@@ -46,8 +46,7 @@ public:
     void OnNull(const YAML::Mark& mark, YAML::anchor_t) override {
         YamlNode node;
         node.at = place(mark);
-        if (expects_value())
-            node.at = open_.back().node.members.back().key_at;
+        if (expects_value()) node.at = open_.back().node.members.back().key_at;
         put(std::move(node), mark);
     }
     void OnAlias(const YAML::Mark& mark, YAML::anchor_t) override {
@@ -107,8 +106,7 @@ private:
         for (const Open& level : open_) {
             if (level.node.is_map() && level.key_given)
                 text += (text.empty() ? "" : ".") + level.node.members.back().key;
-            if (level.node.is_list())
-                text += fmt::format("[{}]", level.node.items.size() + 1);
+            if (level.node.is_list()) text += fmt::format("[{}]", level.node.items.size() + 1);
         }
         return text;
     }
@@ -172,8 +170,7 @@ private:
 
     int first_line(const std::string& key, const YamlNode& value) const {
         for (const YamlNode::Member& member : open_.back().node.members)
-            if (member.key == key)
-                return member.key_at.line;
+            if (member.key == key) return member.key_at.line;
         return value.at.line;
     }
 
@@ -195,8 +192,7 @@ private:
         parent.key_given = false;
         YamlNode::Member& member = parent.node.members.back();
         member.value = std::move(node);
-        if (is_unusable(member))
-            parent.node.members.pop_back();
+        if (is_unusable(member)) parent.node.members.pop_back();
     }
 
     /// Keys that were already reported, so that nothing is said about their values.
@@ -228,8 +224,7 @@ private:
 
 const YamlNode* YamlNode::find(const std::string& key) const {
     for (const Member& member : members)
-        if (member.key == key)
-            return &member.value;
+        if (member.key == key) return &member.value;
     return nullptr;
 }
 
@@ -267,8 +262,7 @@ YamlNode read_yaml_text(const std::string& text, const std::string& name, Proble
     const bool has_bom = text.rfind("\xef\xbb\xbf", 0) == 0;
     const std::string body = has_bom ? text.substr(3) : text;
     const std::vector<std::string> lines = split_lines(body);
-    if (report_text_traps(lines, name, problems))
-        return {};
+    if (report_text_traps(lines, name, problems)) return {};
     TreeBuilder builder(name, lines, problems);
     try {
         std::istringstream stream(body);

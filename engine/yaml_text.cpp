@@ -18,8 +18,7 @@ int bad_utf8(const std::string& line) {
                                  : (c & 0xf0) == 0xe0    ? 2
                                  : c >= 0xf0 && c < 0xf5 ? 3
                                                          : 9;
-        if (more == 9 || i + more >= line.size() + (more == 0))
-            return static_cast<int>(i) + 1;
+        if (more == 9 || i + more >= line.size() + (more == 0)) return static_cast<int>(i) + 1;
         for (std::size_t k = 1; k <= more; ++k)
             if ((static_cast<unsigned char>(line[i + k]) & 0xc0u) != 0x80u)
                 return static_cast<int>(i) + 1;
@@ -34,8 +33,7 @@ Location missing_space(const std::vector<std::string>& lines, const std::string&
          --l) {
         const std::string& line = lines[l - 1];
         std::size_t first = line.find_first_not_of(" -");
-        if (first == std::string::npos)
-            continue;
+        if (first == std::string::npos) continue;
         const std::size_t colon = line.find(':', first);
         const std::size_t space = line.find_first_of(" {[\"'#", first);
         if (colon != std::string::npos && colon < space && colon + 1 < line.size() &&
@@ -96,8 +94,7 @@ bool is_closed(const std::vector<std::string>& lines, int line, int column) {
     if (line >= static_cast<int>(lines.size()) || column >= static_cast<int>(lines[line].size()))
         return true;
     const char quote = lines[line][column];
-    if (quote != '"' && quote != '\'')
-        return true; // a block of literal text
+    if (quote != '"' && quote != '\'') return true; // a block of literal text
     std::size_t at = static_cast<std::size_t>(column) + 1;
     for (std::size_t l = line; l < lines.size(); ++l, at = 0)
         for (; at < lines[l].size(); ++at) {

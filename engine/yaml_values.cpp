@@ -18,8 +18,7 @@ std::string with_unit(double value, std::optional<Dimension> dimension) {
 
 /// A scalar is due. Says so otherwise; `due` is "a length, for example 60 nm".
 bool is_scalar(const YamlNode& node, const std::string& due, Problems& problems) {
-    if (node.is_scalar())
-        return true;
+    if (node.is_scalar()) return true;
     problems.add(node.at, node.path,
                  node.is_empty() ? fmt::format("has no value; {} is due", due)
                                  : fmt::format("{} stands where {} is due", what_it_is(node), due));
@@ -28,8 +27,7 @@ bool is_scalar(const YamlNode& node, const std::string& due, Problems& problems)
 
 bool in_range(const YamlNode& node, double value, const Range& range,
               std::optional<Dimension> dimension, Problems& problems) {
-    if (range.contains(value))
-        return true;
+    if (range.contains(value)) return true;
     problems.add(node.at, node.path,
                  fmt::format("{} is out of range; allowed is {}", quoted(node.text),
                              range_text(range, dimension)));
@@ -41,20 +39,14 @@ bool in_range(const YamlNode& node, double value, const Range& range,
 std::string other_reading(const std::string& text) {
     const std::string low = lower_case(text);
     for (const char* word : {"yes", "on", "y", "true"})
-        if (low == word)
-            return "true";
+        if (low == word) return "true";
     for (const char* word : {"no", "off", "n", "false"})
-        if (low == word)
-            return "false";
-    if (low == "null" || low == "~")
-        return "nothing";
-    if (low == ".nan" || low == ".inf" || low == "-.inf" || low == "+.inf")
-        return "a number";
+        if (low == word) return "false";
+    if (low == "null" || low == "~") return "nothing";
+    if (low == ".nan" || low == ".inf" || low == "-.inf" || low == "+.inf") return "a number";
     const bool digits = !text.empty() && text.find_first_not_of("0123456789:") == std::string::npos;
-    if (digits && text.find(':') != std::string::npos)
-        return "a number to base 60";
-    if (digits && text.size() > 1 && text[0] == '0')
-        return "an octal number";
+    if (digits && text.find(':') != std::string::npos) return "a number to base 60";
+    if (digits && text.size() > 1 && text[0] == '0') return "an octal number";
     return "";
 }
 
@@ -75,21 +67,18 @@ std::string range_text(const Range& range, std::optional<Dimension> dimension) {
 std::optional<double> read_quantity(const YamlNode& node, Dimension dimension, const Range& range,
                                     Problems& problems) {
     const std::string due = fmt::format("{} ({})", noun(dimension), example(dimension));
-    if (!is_scalar(node, due, problems))
-        return std::nullopt;
+    if (!is_scalar(node, due, problems)) return std::nullopt;
     const QuantityText quantity = parse_quantity(node.text, dimension);
     if (!quantity.error.empty()) {
         problems.add(node.at, node.path, quantity.error);
         return std::nullopt;
     }
-    if (!in_range(node, quantity.value, range, dimension, problems))
-        return std::nullopt;
+    if (!in_range(node, quantity.value, range, dimension, problems)) return std::nullopt;
     return quantity.value;
 }
 
 std::optional<double> read_number(const YamlNode& node, const Range& range, Problems& problems) {
-    if (!is_scalar(node, "a number", problems))
-        return std::nullopt;
+    if (!is_scalar(node, "a number", problems)) return std::nullopt;
     const NumberText number = split_number(node.text);
     std::string error = number.error;
     if (error.empty() && !number.unit.empty())
@@ -100,16 +89,14 @@ std::optional<double> read_number(const YamlNode& node, const Range& range, Prob
         problems.add(node.at, node.path, error);
         return std::nullopt;
     }
-    if (!in_range(node, number.value, range, std::nullopt, problems))
-        return std::nullopt;
+    if (!in_range(node, number.value, range, std::nullopt, problems)) return std::nullopt;
     return number.value;
 }
 
 std::optional<long long> read_integer(const YamlNode& node, const Range& range,
                                       Problems& problems) {
     const std::optional<double> number = read_number(node, range, problems);
-    if (!number)
-        return std::nullopt;
+    if (!number) return std::nullopt;
     constexpr double largest = 9007199254740992.0; // 2^53: beyond it doubles skip integers
     if (*number == std::floor(*number) && std::abs(*number) <= largest)
         return static_cast<long long>(*number);
@@ -118,12 +105,9 @@ std::optional<long long> read_integer(const YamlNode& node, const Range& range,
 }
 
 std::optional<bool> read_truth(const YamlNode& node, Problems& problems) {
-    if (!is_scalar(node, "true or false", problems))
-        return std::nullopt;
-    if (node.text == "true")
-        return true;
-    if (node.text == "false")
-        return false;
+    if (!is_scalar(node, "true or false", problems)) return std::nullopt;
+    if (node.text == "true") return true;
+    if (node.text == "false") return false;
     const std::string other = other_reading(node.text);
     const bool means_one = other == "true" || other == "false";
     problems.add(
@@ -135,8 +119,7 @@ std::optional<bool> read_truth(const YamlNode& node, Problems& problems) {
 }
 
 std::optional<std::string> read_text(const YamlNode& node, Problems& problems) {
-    if (!is_scalar(node, "text", problems))
-        return std::nullopt;
+    if (!is_scalar(node, "text", problems)) return std::nullopt;
     const std::string other = node.is_quoted ? "" : other_reading(node.text);
     if (!other.empty()) {
         problems.add(node.at, node.path,
@@ -153,10 +136,8 @@ std::optional<std::string> read_text(const YamlNode& node, Problems& problems) {
 
 std::optional<std::string> read_word(const YamlNode& node, const std::vector<std::string>& words,
                                      Problems& problems) {
-    if (!is_scalar(node, listed(words), problems))
-        return std::nullopt;
-    if (std::find(words.begin(), words.end(), node.text) != words.end())
-        return node.text;
+    if (!is_scalar(node, listed(words), problems)) return std::nullopt;
+    if (std::find(words.begin(), words.end(), node.text) != words.end()) return node.text;
     const bool comment = node.text.find('#') != std::string::npos;
     problems.add(node.at, node.path,
                  fmt::format("{} is not known here; allowed: {}{}", quoted(node.text),
@@ -167,8 +148,7 @@ std::optional<std::string> read_word(const YamlNode& node, const std::vector<std
 }
 
 MapReader::MapReader(const YamlNode& node, Problems& problems) : node_(node), problems_(problems) {
-    if (node.is_map())
-        return;
+    if (node.is_map()) return;
     problems.add(node.at, node.path,
                  node.is_empty() ? "has no value; a map of keys and values is due"
                                  : fmt::format("{} stands where a map of keys and values is due",
@@ -189,8 +169,7 @@ const YamlNode* MapReader::required(const std::string& key) {
 
 void MapReader::finish() {
     for (const YamlNode::Member& member : node_.members) {
-        if (std::find(asked_.begin(), asked_.end(), member.key) != asked_.end())
-            continue;
+        if (std::find(asked_.begin(), asked_.end(), member.key) != asked_.end()) continue;
         const std::string guess = did_you_mean(member.key, asked_);
         problems_.add(member.key_at, member.value.path,
                       guess.empty() ? fmt::format("unknown key; allowed: {}", listed(asked_))

@@ -30,11 +30,9 @@ struct Context {
 /// A yield at one energy fixes the last free factor of a law.
 double factor_through(const YamlNode* node, const EnergyLaw& law, const Context& c) {
     const std::optional<Parameter> point = c.parameters.read(node, yield_at);
-    if (!point)
-        return 1;
+    if (!point) return 1;
     const double y = energy_yield(law, *point->at);
-    if (y > 0)
-        return point->value / y;
+    if (y > 0) return point->value / y;
     c.problems.add(node->at, node->path, "this energy is not above the threshold of the law");
     return 1;
 }
@@ -42,8 +40,7 @@ double factor_through(const YamlNode* node, const EnergyLaw& law, const Context&
 /// A cited number in a unit that belongs to one law alone, and so is no dimension of its own.
 double read_in_unit(const YamlNode* node, const std::string& unit, const std::string& sample,
                     const Context& c) {
-    if (!node)
-        return 1;
+    if (!node) return 1;
     YamlNode stripped = *node;
     if (YamlNode* value = stripped.find("value"); value && value->is_scalar()) {
         const NumberText number = split_number(value->text);
@@ -73,12 +70,10 @@ EnergyLaw read_square_root(MapReader& map, const YamlNode& node, const Context& 
 }
 
 const ElementData* read_element(const YamlNode* node, bool needs_binding, const Context& c) {
-    if (!node)
-        return nullptr;
+    if (!node) return nullptr;
     std::vector<std::string> names;
     for (const ElementData& e : c.library.elements)
-        if (!needs_binding || e.surface_binding_ev > 0)
-            names.push_back(e.name);
+        if (!needs_binding || e.surface_binding_ev > 0) names.push_back(e.name);
     const std::optional<std::string> name = read_word(*node, names, c.problems);
     return name ? c.library.element(*name) : nullptr;
 }
@@ -99,8 +94,7 @@ EnergyLaw read_yamamura_tawara(MapReader& map, const Context& c) {
     YamamuraTawaraLaw law;
     const auto [ion, target] = read_pair(map, c);
     const YamlNode* through = map.optional("through");
-    if (!ion || !target)
-        return ConstantLaw{0};
+    if (!ion || !target) return ConstantLaw{0};
     law = {ion->atomic_number,
            ion->mass_amu,
            target->atomic_number,
@@ -120,8 +114,7 @@ EnergyLaw read_bohdansky(MapReader& map, const YamlNode& node, const Context& c)
     if ((q != nullptr) == (through != nullptr))
         c.problems.add(node.at, node.path,
                        "the bohdansky law needs either q or through (the yield at an energy)");
-    if (!ion || !target)
-        return ConstantLaw{0};
+    if (!ion || !target) return ConstantLaw{0};
     const CollisionPair pair{ion->atomic_number, ion->mass_amu, target->atomic_number,
                              target->mass_amu, target->surface_binding_ev};
     BohdanskyLaw law = bohdansky_law(pair, c.parameters.value(q, plain_positive, 1));
@@ -148,8 +141,7 @@ EnergyLaw read_energy_law(const YamlNode& node, const Context& c) {
                       {"square root", "yamamura-tawara", "bohdansky", "eckstein", "constant"},
                       c.problems)
                 .value_or("");
-        if (name.empty())
-            return law;
+        if (name.empty()) return law;
         if (name == "square root")
             law = read_square_root(map, node, c);
         else if (name == "yamamura-tawara")
@@ -174,8 +166,7 @@ AngleLaw read_angle_law(const YamlNode& node, const Context& c) {
             read_word(*word, {"flat", "plateau then cosine", "plateau then line", "peaked"},
                       c.problems)
                 .value_or("");
-        if (name.empty())
-            return law;
+        if (name.empty()) return law;
         if (name == "plateau then cosine")
             law = PlateauCosine{c.parameters.value(map.required("plateau"), angle)};
         else if (name == "plateau then line")
@@ -193,8 +184,7 @@ AngleLaw read_angle_law(const YamlNode& node, const Context& c) {
 
 bool is_known(const std::string& ion, const YamlNode& at, const std::vector<std::string>& known,
               Problems& problems) {
-    if (std::find(known.begin(), known.end(), ion) != known.end())
-        return true;
+    if (std::find(known.begin(), known.end(), ion) != known.end()) return true;
     problems.add(at.at, at.path,
                  fmt::format("{} is not among the ions of this chemistry ({}){}", quoted(ion),
                              listed(known), did_you_mean(ion, known)));
@@ -227,13 +217,10 @@ std::optional<YieldFunction> read_yield(const YamlNode& node, const MaterialsLib
     const Context c{library, parameters, problems};
     MapReader map(node, problems);
     YieldFunction yield;
-    if (const YamlNode* energy = map.required("energy"))
-        yield.energy = read_energy_law(*energy, c);
-    if (const YamlNode* angle = map.required("angle"))
-        yield.angle = read_angle_law(*angle, c);
+    if (const YamlNode* energy = map.required("energy")) yield.energy = read_energy_law(*energy, c);
+    if (const YamlNode* angle = map.required("angle")) yield.angle = read_angle_law(*angle, c);
     map.finish();
-    if (problems.size() != before)
-        return std::nullopt;
+    if (problems.size() != before) return std::nullopt;
     return yield;
 }
 
@@ -250,8 +237,7 @@ std::vector<IonShare> read_ions(const YamlNode& node, const std::vector<std::str
                 ions.push_back({*ion});
     } else if (node.is_map()) {
         for (const YamlNode::Member& member : node.members) {
-            if (!is_known(member.key, member.value, known, problems))
-                continue;
+            if (!is_known(member.key, member.value, known, problems)) continue;
             MapReader map(member.value, problems);
             IonShare share{member.key};
             share.times = parameters.value(map.optional("times"), plain, 1);

@@ -23,8 +23,7 @@ OpeningAims::OpeningAims(const geometry::Domain& domain, const geometry::RayCast
     : domain_(domain) {
     read_heights(caster);
     const auto [low, high] = std::minmax_element(height_.begin(), height_.end());
-    if (*high - *low < domain_.spacing)
-        return;
+    if (*high - *low < domain_.spacing) return;
     // Close together near the top, where the rim of an opening is.
     for (int l = 0; l < level_count; ++l) {
         const double share = (l + 0.5) / level_count;
@@ -54,8 +53,7 @@ void OpeningAims::flood(Level& level) const {
     level.cells.resize(height_.size());
     std::vector<int> everything;
     for (int seed = 0; seed < nx * ny; ++seed) {
-        if (height_[seed] >= level.z || level.cells[seed].opening >= 0)
-            continue;
+        if (height_[seed] >= level.z || level.cells[seed].opening >= 0) continue;
         const int id = static_cast<int>(level.openings.size());
         level.cells[seed] = {id, 0, 0};
         std::vector<int> queue{seed};
@@ -67,11 +65,9 @@ void OpeningAims::flood(Level& level) const {
             for (const auto& step : steps) {
                 const int a = i + step[0], b = j + step[1];
                 const int di = floor_div(a, nx), dj = floor_div(b, ny);
-                if (domain_.sides == geometry::Sides::mirror && (di || dj))
-                    continue;
+                if (domain_.sides == geometry::Sides::mirror && (di || dj)) continue;
                 const int next = (b - dj * ny) * nx + (a - di * nx);
-                if (height_[next] >= level.z || level.cells[next].opening >= 0)
-                    continue;
+                if (height_[next] >= level.z || level.cells[next].opening >= 0) continue;
                 level.cells[next] = {id, di, dj};
                 queue.push_back(next);
             }
@@ -95,11 +91,9 @@ void OpeningAims::spread(Level& level, std::vector<int>& front) const {
         for (const auto& step : steps) {
             const int a = i + step[0], b = j + step[1];
             const int di = floor_div(a, nx), dj = floor_div(b, ny);
-            if (domain_.sides == geometry::Sides::mirror && (di || dj))
-                continue;
+            if (domain_.sides == geometry::Sides::mirror && (di || dj)) continue;
             const int next = (b - dj * ny) * nx + (a - di * nx);
-            if (level.cells[next].opening >= 0)
-                continue;
+            if (level.cells[next].opening >= 0) continue;
             level.cells[next] = {from.opening, from.di + di, from.dj + dj};
             front.push_back(next);
         }
@@ -107,13 +101,11 @@ void OpeningAims::spread(Level& level, std::vector<int>& front) const {
 }
 
 void OpeningAims::widen_at_mirrors(Aim& aim) const {
-    if (domain_.sides != geometry::Sides::mirror)
-        return;
+    if (domain_.sides != geometry::Sides::mirror) return;
     const auto widen = [](double& low, double& high, double side_low, double width) {
         const double side_high = side_low + width;
         const double mirrored = low <= side_low ? 2 * side_low - high : low;
-        if (high >= side_high)
-            high = 2 * side_high - low;
+        if (high >= side_high) high = 2 * side_high - low;
         low = mirrored;
     };
     widen(aim.x0, aim.x1, domain_.x_min(), domain_.width_x());
@@ -129,15 +121,12 @@ std::optional<Aim> OpeningAims::from(const geometry::Vec3& p) const {
     double smallest = 1.0; // area over height squared; above that the cosine law does as well
     for (const Level& level : levels_) {
         const double up = level.z - p.z;
-        if (up < h)
-            break;
+        if (up < h) break;
         const Cell cell = level.cells[std::size_t(j) * nx + i];
-        if (cell.opening < 0)
-            continue;
+        if (cell.opening < 0) continue;
         Aim aim = level.openings[cell.opening];
         const double size = aim.area() / (up * up);
-        if (size >= smallest)
-            continue;
+        if (size >= smallest) continue;
         smallest = size;
         // The opening's frame is di, dj periods away from the frame of the cell.
         aim.x0 -= cell.di * domain_.width_x(), aim.x1 -= cell.di * domain_.width_x();

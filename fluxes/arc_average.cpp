@@ -27,8 +27,7 @@ std::vector<Piece> smooth_pieces(const Surface& s) {
     std::vector<char> taken(count, 0);
     std::vector<Piece> pieces;
     for (int seed = 0; seed < count; ++seed) {
-        if (taken[seed])
-            continue;
+        if (taken[seed]) continue;
         int start = seed;
         bool ring = false;
         for (int e = s.previous[start]; e >= 0 && !corner_between(s, e, start); e = s.previous[e]) {
@@ -40,8 +39,7 @@ std::vector<Piece> smooth_pieces(const Surface& s) {
         }
         Piece piece{{}, ring};
         for (int e = start; e >= 0 && !taken[e]; e = s.next[e]) {
-            if (e != start && corner_between(s, s.previous[e], e))
-                break;
+            if (e != start && corner_between(s, s.previous[e], e)) break;
             taken[e] = 1;
             piece.elements.push_back(e);
         }
@@ -52,10 +50,8 @@ std::vector<Piece> smooth_pieces(const Surface& s) {
 
 /// Second integral over arc of the indicator of [from, to].
 double twice_integrated(double s, double from, double to) {
-    if (s <= from)
-        return 0.0;
-    if (s <= to)
-        return 0.5 * (s - from) * (s - from);
+    if (s <= from) return 0.0;
+    if (s <= to) return 0.5 * (s - from) * (s - from);
     return (to - from) * (s - 0.5 * (from + to));
 }
 
@@ -113,8 +109,7 @@ void add_piece(const Surface& surface, const Piece& piece, double window,
         auto& row = rows[piece.elements[i]];
         for (int j : near) {
             const double w = weight(i, j);
-            if (w <= 0)
-                continue;
+            if (w <= 0) continue;
             row.push_back({piece.elements[j], w});
             sum += w;
         }

@@ -38,8 +38,7 @@ public:
     /// Sticking s and, if asked, loss[(e * K + k) * K + l] = d(s_k x_k) / d(x_l).
     void evaluate(int batch, const Vector& x, Vector& s, Vector* loss) const {
         s.resize(unknowns());
-        if (loss)
-            loss->resize(n_ * species_ * species_);
+        if (loss) loss->resize(n_ * species_ * species_);
         tbb::parallel_for(tbb::blocked_range<std::size_t>(0, n_, 64), [&](const auto& range) {
             for (std::size_t e = range.begin(); e != range.end(); ++e)
                 at_element(e, batch, x, s, loss);
@@ -95,8 +94,7 @@ private:
         const auto here = sticking_(int(e), batch, neutrals.data());
         for (std::size_t k = 0; k < species_; ++k)
             s[k * n_ + e] = here[k];
-        if (!loss)
-            return;
+        if (!loss) return;
         for (std::size_t l = 0; l < species_; ++l) {
             const double at = x[l * n_ + e], more = at + std::max(1e-6 * at, 1e-12);
             auto moved = neutrals;
@@ -139,8 +137,7 @@ State backtrack(const Problem& p, const State& from, const Vector& step) {
         for (std::size_t i = 0; i < x.size(); ++i)
             x[i] = std::max(x[i] + share * step[i], 0.0);
         next = evaluate(p, std::move(x));
-        if (next.size <= from.size)
-            break;
+        if (next.size <= from.size) break;
     }
     return next;
 }
@@ -185,8 +182,7 @@ CoupledArrivals solve_coupled(const Exchange& exchange, const std::vector<double
         result.residual = largest_change(state.s, next.s);
         state = std::move(next);
         ++result.iterations;
-        if (result.residual < 1e-6 && state.size < 1e-8 * scale)
-            break;
+        if (result.residual < 1e-6 && state.size < 1e-8 * scale) break;
         if (result.iterations == max_iterations)
             throw NumericsError(
                 "transport and kinetics of neutrals did not converge: sticking still changes by " +

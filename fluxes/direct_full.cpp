@@ -82,8 +82,7 @@ private:
     void gather(int e, int ion) {
         const std::vector<Arrival> arrivals = trace(e, ion);
         for (std::size_t m = 0; m < tables_.tallies().size(); ++m)
-            if (tables_.tallies()[m].ion == ion)
-                tabulate(static_cast<int>(m), e, arrivals);
+            if (tables_.tallies()[m].ion == ion) tabulate(static_cast<int>(m), e, arrivals);
     }
 
     /// One ray per direction.
@@ -105,10 +104,8 @@ private:
                 const double facing = from.dot(own);
                 const bool seen = facing > 0 ? caster_.trace(at, from, e).kind == Hit::Kind::open
                                              : reached_from_behind(at, from);
-                if (!seen)
-                    continue;
-                if (facing > 0)
-                    gathered_.flux[ion][e] += share * facing / from.z;
+                if (!seen) continue;
+                if (facing > 0) gathered_.flux[ion][e] += share * facing / from.z;
                 arrivals.push_back(
                     {from.z, from.x * hx + from.y * hy, share / from.z, ion_sample.energy_ev, b});
             }
@@ -158,15 +155,12 @@ private:
         double* batch = &gathered_.batch[m][std::size_t(e) * batches];
         for (const Arrival& a : arrivals) {
             const double strength = a.weight * yield.scale * energy_yield(yield.energy, a.energy);
-            if (strength == 0)
-                continue;
+            if (strength == 0) continue;
             const double own = own_c * a.up + own_s * a.along;
-            if (own > 0)
-                batch[a.batch] += batches * strength * own * factor(own);
+            if (own > 0) batch[a.batch] += batches * strength * own * factor(own);
             for (std::size_t k = 0; k < angles; ++k) {
                 const double c = cosine_[k] * a.up + sine_[k] * a.along;
-                if (c > 0)
-                    row[k] += strength * c * factor(c);
+                if (c > 0) row[k] += strength * c * factor(c);
             }
         }
         for (int b = 0; b < batches; ++b)

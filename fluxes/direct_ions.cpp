@@ -6,10 +6,8 @@
 namespace rille::fluxes {
 
 double on_row(const std::vector<double>& angles, const float* row, double angle) {
-    if (angle <= angles.front())
-        return row[0];
-    if (angle >= angles.back())
-        return row[angles.size() - 1];
+    if (angle <= angles.front()) return row[0];
+    if (angle >= angles.back()) return row[angles.size() - 1];
     const std::size_t k =
         std::upper_bound(angles.begin(), angles.end(), angle) - angles.begin() - 1;
     const double part = (angle - angles[k]) / (angles[k + 1] - angles[k]);
@@ -41,8 +39,7 @@ double DirectIons::tally_at(int m, int element, double angle) const {
 }
 
 double DirectIons::tally_batch(int b, int m, int element) const {
-    if (gathered_.batch.empty())
-        return tally(m, element);
+    if (gathered_.batch.empty()) return tally(m, element);
     return gathered_.batch[m][std::size_t(element) * 8 + b];
 }
 

@@ -42,8 +42,7 @@ struct Exchange::Tracing {
             stream_key(options.seed, stream_name, options.refresh, element, batch));
     }
     void keep(const Hit& hit, int element, int batch) {
-        if (hit.kind != Hit::Kind::surface)
-            return;
+        if (hit.kind != Hit::Kind::surface) return;
         auto& count = exchange.hits_[std::size_t(element) * batches + batch];
         const std::size_t slot = (std::size_t(element) * batches + batch) * exchange.per_batch_;
         exchange.target_[slot + count++] = hit.element;
@@ -79,8 +78,7 @@ void Exchange::Tracing::extruded(int element) {
         for (int r = 0; r < exchange.per_batch_ && skip < 2 - 1e-9; ++r) {
             const auto u = stream.pair(r, 0);
             double sine = -1 + (2 - skip) * (u[1] + 1e-12);
-            if (sine > skip_from)
-                sine += skip;
+            if (sine > skip_from) sine += skip;
             const double phi = psi + std::asin(std::clamp(sine, -1.0, 1.0));
             keep(caster.trace(a + (b - a) * u[0], {std::sin(phi), 0, std::cos(phi)}, element),
                  element, batch);
@@ -124,8 +122,7 @@ double Exchange::Tracing::sky_flux(int element, int batch, const std::optional<A
         const Vec3 d = cosine_direction(normal, u[0], u[1]);
         const Hit hit = caster.trace(from, d, element);
         keep(hit, element, batch);
-        if (hit.kind == Hit::Kind::open)
-            flux += weight(from, d);
+        if (hit.kind == Hit::Kind::open) flux += weight(from, d);
     }
     for (int r = 0; aim && r < n; ++r) {
         const auto u = stream.pair(r, 2), v = stream.pair(r, 3);
@@ -133,10 +130,8 @@ double Exchange::Tracing::sky_flux(int element, int batch, const std::optional<A
         const Vec3 to(aim->x0 + u[0] * (aim->x1 - aim->x0), aim->y0 + u[1] * (aim->y1 - aim->y0),
                       aim->z);
         const Vec3 d = (to - from).normalized();
-        if (d.z <= 0 || normal.dot(d) <= 0)
-            continue;
-        if (caster.trace(from, d, element).kind == Hit::Kind::open)
-            flux += weight(from, d);
+        if (d.z <= 0 || normal.dot(d) <= 0) continue;
+        if (caster.trace(from, d, element).kind == Hit::Kind::open) flux += weight(from, d);
     }
     sort(element, batch);
     return std::min(flux, 1.0);
@@ -184,8 +179,7 @@ void Exchange::find_open() {
             const int e = upwards ? k : n - 1 - k;
             for (int r = 0; r < rays && !open_[e]; ++r) {
                 const std::int32_t t = target_[std::size_t(e) * rays + r];
-                if (t >= 0 && open_[t])
-                    open_[e] = 1, changed = true;
+                if (t >= 0 && open_[t]) open_[e] = 1, changed = true;
             }
         }
     }
@@ -204,8 +198,7 @@ double Exchange::row(int element, int batch, const double* emitted) const {
     double sum = 0;
     if (batch >= 0) {
         const int count = gather(batch, sum);
-        if (count > 0)
-            return rest * sum / count;
+        if (count > 0) return rest * sum / count;
     }
     int count = 0;
     for (int b = 0; b < batches; ++b)
@@ -229,8 +222,7 @@ std::vector<double> Exchange::solve(const std::vector<double>& sticking, int bat
     std::vector<double> emitted(n);
     std::vector<double> rhs = direct(batch);
     for (std::size_t e = 0; e < n; ++e)
-        if (!open_[e])
-            x[e] = rhs[e] = 0;
+        if (!open_[e]) x[e] = rhs[e] = 0;
     const int used = solve_linear(
         [&](const double* in, double* out) {
             for (std::size_t e = 0; e < n; ++e)
@@ -240,8 +232,7 @@ std::vector<double> Exchange::solve(const std::vector<double>& sticking, int bat
                 out[e] = in[e] - out[e];
         },
         rhs, x, 1e-10);
-    if (iterations)
-        *iterations += used;
+    if (iterations) *iterations += used;
     for (double& value : x)
         value = std::max(value, 0.0);
     return x;

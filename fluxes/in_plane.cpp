@@ -51,11 +51,9 @@ std::vector<double> symmetric_edges(const std::function<double(double)>& share_a
             (share_above(middle) > level ? low : high) = middle;
         }
         floor = 0.5 * (low + high);
-        if (upper.empty() ? floor > 0 : floor > upper.back() * (1 + 1e-12))
-            upper.push_back(floor);
+        if (upper.empty() ? floor > 0 : floor > upper.back() * (1 + 1e-12)) upper.push_back(floor);
     }
-    if (upper.empty() || upper.back() < largest)
-        upper.push_back(largest);
+    if (upper.empty() || upper.back() < largest) upper.push_back(largest);
     std::vector<double> edges;
     for (auto u = upper.rbegin(); u != upper.rend(); ++u)
         edges.push_back(-*u);
@@ -66,10 +64,8 @@ std::vector<double> symmetric_edges(const std::function<double(double)>& share_a
 
 /// Slope at an edge; 90 deg stands for infinity.
 double slope_of(double phi) {
-    if (phi >= 0.5 * pi)
-        return HUGE_VAL;
-    if (phi <= -0.5 * pi)
-        return -HUGE_VAL;
+    if (phi >= 0.5 * pi) return HUGE_VAL;
+    if (phi <= -0.5 * pi) return -HUGE_VAL;
     return std::tan(phi);
 }
 
@@ -144,8 +140,7 @@ void add_layers(InPlane& plane, const std::vector<Layer>& layers, bool fixed_ene
         const double a = low / layer.sigma, b = high / layer.sigma;
         const double mass = a > 0 ? normal_cdf(-a) - normal_cdf(-b) : normal_cdf(b) - normal_cdf(a);
         const double weight = mass * layer.weight * hermite_weight[point];
-        if (!(weight > 1e-18))
-            continue;
+        if (!(weight > 1e-18)) continue;
         const double from = std::max(low, -1e9), to = std::min(high, 1e9);
         const double slope =
             std::clamp(layer.sigma * (normal_pdf(a) - normal_pdf(b)) / mass, from, to);
@@ -164,8 +159,7 @@ void add_layers(InPlane& plane, const std::vector<Layer>& layers, bool fixed_ene
         sum.cos_polar += weight * node.cos_polar;
         spectrum.push_back({energy, weight});
     }
-    if (!(sum.weight > 0))
-        return;
+    if (!(sum.weight > 0)) return;
     for (auto& part : spectrum)
         part.share /= sum.weight;
     sum.slope /= sum.weight;
@@ -204,13 +198,11 @@ std::vector<Ring> rings_of(const IonHistogram& law, InPlane& plane) {
     std::vector<Ring> rings;
     for (std::size_t a = 0; a + 1 < law.cosine.size(); ++a) {
         const double column = law.angle_cdf[a + 1] - law.angle_cdf[a];
-        if (!(column > 0))
-            continue;
+        if (!(column > 0)) continue;
         std::vector<InPlane::EnergyShare> spectrum;
         for (std::size_t e = 0; e + 1 < law.energy.size(); ++e) {
             const double share = law.energy_cdf[a][e + 1] - law.energy_cdf[a][e];
-            if (!(share > 0))
-                continue;
+            if (!(share > 0)) continue;
             const double width = law.energy[e + 1] - law.energy[e];
             for (int i = 0; i < energies_per_bin; ++i)
                 spectrum.push_back({law.energy[e] + width * (i + 0.5) / energies_per_bin,
@@ -252,8 +244,7 @@ InPlane from_histogram(const IonHistogram& law) {
         for (const Ring& ring : rings) {
             const double from = ring_azimuth(ring, slope_of(plane.angle[bin + 1]));
             const double to = ring_azimuth(ring, slope_of(plane.angle[bin]));
-            if (!(to - from > 1e-14))
-                continue;
+            if (!(to - from > 1e-14)) continue;
             const double slope = ring.tangent * (std::sin(to) - std::sin(from)) / (to - from);
             plane.nodes.push_back(
                 {bin, slope, ring.cosine, ring.weight * (to - from) / pi, ring.spectrum});
@@ -265,8 +256,7 @@ InPlane from_histogram(const IonHistogram& law) {
 struct Resolve {
     InPlane operator()(const ThermalFall& law) const {
         const std::vector<Layer> layers = thermal_layers(law);
-        if (law.transverse_ev > 0)
-            return from_layers(layers, false);
+        if (law.transverse_ev > 0) return from_layers(layers, false);
         std::vector<InPlane::EnergyShare> spectrum;
         for (const Layer& layer : layers)
             spectrum.push_back({layer.normal_ev, layer.weight});
@@ -290,10 +280,8 @@ InPlane resolve_in_plane(const IonLaw& law) {
 
 InPlane::Place InPlane::place(double phi) const {
     const int bins = static_cast<int>(angle.size()) - 1;
-    if (phi <= angle.front())
-        return {0, 0.0};
-    if (phi >= angle.back())
-        return {bins - 1, 1.0};
+    if (phi <= angle.front()) return {0, 0.0};
+    if (phi >= angle.back()) return {bins - 1, 1.0};
     const int bin =
         static_cast<int>(std::upper_bound(angle.begin(), angle.end(), phi) - angle.begin()) - 1;
     // sin b - sin a = 2 sin((b - a)/2) cos((a + b)/2): keeps its digits in narrow bins.
@@ -311,10 +299,8 @@ double InPlane::share_below(double phi) const {
 
 double InPlane::moment_below(double phi) const {
     const Place p = place(phi);
-    if (p.part == 0)
-        return moment[p.bin];
-    if (p.part == 1)
-        return moment[p.bin + 1];
+    if (p.part == 0) return moment[p.bin];
+    if (p.part == 1) return moment[p.bin + 1];
     // Uniform in sin(phi) inside the bin, then shifted so that the bin's own moment is kept.
     const double a = angle[p.bin], b = angle[p.bin + 1];
     const double whole = std::sin(b) - std::sin(a);

@@ -22,21 +22,18 @@ Vec3 mirrored(const Vec3& v, const Vec3& normal) {
 
 double reflection_probability(const IonReflection& law, double cos_incidence) {
     const double theta = std::acos(std::clamp(cos_incidence, 0.0, 1.0)) / degree;
-    if (theta <= law.critical_deg || law.critical_deg >= 90)
-        return 0.0;
+    if (theta <= law.critical_deg || law.critical_deg >= 90) return 0.0;
     const double x = (theta - law.critical_deg) / (90 - law.critical_deg);
     return law.probability * std::pow(x, law.exponent);
 }
 
 double energy_kept(const IonReflection& law, double ion_amu, double cos_incidence) {
-    if (law.collisions <= 0)
-        return 1.0;
+    if (law.collisions <= 0) return 1.0;
     const double theta = std::acos(std::clamp(cos_incidence, 0.0, 1.0));
     const double chi = (pi - 2 * theta) / law.collisions;
     const double mu = law.target_mass_amu / ion_amu;
     const double inside = mu * mu - std::pow(std::sin(chi), 2);
-    if (inside < 0 || (mu < 1 && chi > 0.5 * pi))
-        return 0.0;
+    if (inside < 0 || (mu < 1 && chi > 0.5 * pi)) return 0.0;
     const double root = (std::cos(chi) + std::sqrt(inside)) / (1 + mu);
     return root <= 0 ? 0.0 : std::pow(root, 2 * law.collisions);
 }
@@ -47,25 +44,21 @@ Vec3 reflected_direction(const IonReflection& law, const Vec3& incoming, const V
     Vec3 specular = mirrored(incoming, incoming.dot(mean) < 0 ? mean : own);
     const auto leaves = [&](const Vec3& d) { return d.dot(own) > least && d.dot(mean) > least; };
     // A wall can be too rough for its averaged normal: then lift the direction off its own plane.
-    if (specular.dot(own) <= least)
-        specular = mirrored(incoming, own);
+    if (specular.dot(own) <= least) specular = mirrored(incoming, own);
     if (specular.dot(own) <= least)
         specular = (specular + own * (2 * least - specular.dot(own))).normalized();
-    if (law.scatter_deg <= 0)
-        return specular;
+    if (law.scatter_deg <= 0) return specular;
     const Vec3 helper = std::fabs(specular.x) < 0.5 ? Vec3(1, 0, 0) : Vec3(0, 1, 0);
     const Vec3 across = specular.cross(helper).normalized(), other = specular.cross(across);
     constexpr int tries = 64; // at worst one in four is refused at each try
     for (int i = 0; i < tries; ++i) {
         const double u = unit_interval(stream_key(key, 2 * i));
         const double angle = law.scatter_deg * degree * std::sqrt(-2 * std::log1p(-u));
-        if (angle >= pi)
-            continue;
+        if (angle >= pi) continue;
         const double azimuth = 2 * pi * unit_interval(stream_key(key, 2 * i + 1));
         const Vec3 d = specular * std::cos(angle) + across * (std::sin(angle) * std::cos(azimuth)) +
                        other * (std::sin(angle) * std::sin(azimuth));
-        if (leaves(d))
-            return d.normalized();
+        if (leaves(d)) return d.normalized();
     }
     return specular;
 }

@@ -36,14 +36,12 @@ std::vector<double> march(double from, double to, const std::vector<Grazing>& gr
                           double coarsen) {
     std::vector<double> stops = {from, to};
     for (const Grazing& g : grazing)
-        if (g.at > from && g.at < to)
-            stops.push_back(g.at);
+        if (g.at > from && g.at < to) stops.push_back(g.at);
     std::sort(stops.begin(), stops.end());
     std::vector<double> angles = {from};
     for (std::size_t s = 1; s < stops.size(); ++s) {
         const double begin = angles.back(), end = stops[s];
-        if (!(end - begin > 1e-9))
-            continue;
+        if (!(end - begin > 1e-9)) continue;
         std::vector<double> walk = {begin};
         while (walk.back() < end) {
             const double here = spacing_at(walk.back(), grazing, coarsen);
@@ -101,8 +99,7 @@ IonTables::IonTables(geometry::Symmetry symmetry, std::vector<IonSource> ions,
     : ions_(std::move(ions)), tallies_(std::move(tallies)),
       content_(content_of(symmetry, ions_, tallies_)) {
     place_angles(symmetry);
-    if (symmetry != geometry::Symmetry::extruded)
-        return;
+    if (symmetry != geometry::Symmetry::extruded) return;
     for (const Tally& tally : tallies_)
         table_.push_back(tabulate(tally));
     for (int s = 0; s < static_cast<int>(ions_.size()); ++s)
@@ -125,16 +122,14 @@ void IonTables::place_angles(geometry::Symmetry symmetry) {
             const bool known = std::any_of(grazing.begin(), grazing.end(), [&](const Grazing& g) {
                 return std::fabs(g.at - at) < 0.1 * spread && g.spread <= spread;
             });
-            if (!known)
-                grazing.push_back({at, spread});
+            if (!known) grazing.push_back({at, spread});
         }
     }
     const double from = extruded ? -pi : 0.0;
     const std::size_t most = extruded ? 240 : 64;
     for (double coarsen = 1;; coarsen *= 1.1) {
         angles_ = march(from, pi, grazing, coarsen);
-        if (angles_.size() <= most)
-            break;
+        if (angles_.size() <= most) break;
     }
 }
 
@@ -155,8 +150,7 @@ std::vector<double> IonTables::tabulate(const Tally& t) const {
             const double c = std::cos(angles_[k]), s = std::sin(angles_[k]);
             for (const InPlane::Node& node : plane.nodes) {
                 const double received = c + node.slope * s; // (r . n) / r_z
-                if (received <= 0)
-                    continue;
+                if (received <= 0) continue;
                 table[(node.bin + 1) * count + k] +=
                     node.weight * energy[node.spectrum] * received *
                     angle_factor(t.yield.angle, received * node.cos_polar);

@@ -16,8 +16,7 @@ constexpr double pi = 3.14159265358979323846;
 constexpr double degree = pi / 180.0;
 
 void require(bool condition, const char* message) {
-    if (!condition)
-        throw std::invalid_argument(message);
+    if (!condition) throw std::invalid_argument(message);
 }
 
 Vec3 downwards(double slope, double azimuth) {
@@ -85,8 +84,7 @@ struct ShareWithin {
 
     /// 1 - exp(-(V/Tperp) tan^2) / (1 + (Tpar/Tperp) tan^2), the two exponentials integrated.
     double operator()(const ThermalFall& law) const {
-        if (law.transverse_ev == 0)
-            return 1.0;
+        if (law.transverse_ev == 0) return 1.0;
         const double t2 = tangent * tangent / law.transverse_ev;
         return 1.0 - std::exp(-law.drop_ev * t2) / (1.0 + law.normal_ev * t2);
     }
@@ -187,8 +185,7 @@ IonDistribution IonDistribution::histogram(std::vector<double> energy_edges_ev,
     IonHistogram law;
     for (double a : angle_edges_deg)
         law.cosine.push_back(std::cos(a * degree));
-    if (angle_edges_deg.back() == 90)
-        law.cosine.back() = 0;
+    if (angle_edges_deg.back() == 90) law.cosine.back() = 0;
     law.angle_cdf.assign(1, 0.0);
     for (std::size_t a = 0; a < bins; ++a) {
         std::vector<double> cdf(1, 0.0);
@@ -228,10 +225,8 @@ double IonDistribution::mean_energy_ev() const {
 }
 
 double IonDistribution::share_within_deg(double angle_deg) const {
-    if (angle_deg < 0)
-        return 0.0;
-    if (angle_deg >= 90)
-        return 1.0;
+    if (angle_deg < 0) return 0.0;
+    if (angle_deg >= 90) return 1.0;
     return std::visit(ShareWithin{std::tan(angle_deg * degree)}, impl_->law);
 }
 

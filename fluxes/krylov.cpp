@@ -88,8 +88,7 @@ int solve_linear(const LinearOperator& apply, const std::vector<double>& rhs,
         Eigen::VectorXd residual(n);
         apply(x.data(), residual.data());
         residual -= b;
-        if (residual.norm() <= 2 * tolerance * b.norm())
-            return iterations;
+        if (residual.norm() <= 2 * tolerance * b.norm()) return iterations;
     }
     throw NumericsError("the neutral transport equations did not converge");
 }

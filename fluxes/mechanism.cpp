@@ -18,8 +18,7 @@ Mechanism& Mechanism::operator=(Mechanism&&) noexcept = default;
 
 double Arrhenius::at(double temperature_k) const {
     constexpr double boltzmann_ev = 8.617333262e-5; // eV/K, CODATA 2018
-    if (activation_ev == 0.0)
-        return value;
+    if (activation_ev == 0.0) return value;
     return value *
            std::exp(-activation_ev / boltzmann_ev * (1.0 / temperature_k - 1.0 / reference_k));
 }
@@ -74,8 +73,7 @@ struct Collect {
         b.loss[p.coverage] += p.atoms * in.probability(p.probability) * in.neutral(p.neutral);
     }
     void operator()(const Deposition& p) const {
-        if (p.coverage < 0)
-            return;
+        if (p.coverage < 0) return;
         b.deposit[p.coverage] += in.sticking(p.sticking, p.assistance) * in.neutral(p.neutral);
         b.film_density[p.coverage] = p.film_density;
         b.film_material[p.coverage] = p.film_material;
@@ -95,8 +93,7 @@ struct Coverage {
 /// The fastest film with more deposited than removed covers everything.
 bool find_growth(const Balance& b, int count, Coverage& c) {
     for (int j = 0; j < count; ++j) {
-        if (!(b.deposit[j] > b.loss[j]) || b.gain[j] <= 0.0)
-            continue;
+        if (!(b.deposit[j] > b.loss[j]) || b.gain[j] <= 0.0) continue;
         const double speed = (b.deposit[j] - b.loss[j]) / b.film_density[j];
         if (speed > c.growth) {
             c.growth = speed;
@@ -119,8 +116,7 @@ Coverage solve(const Balance& b, int count) {
     }
     double unopposed = 0.0, total = 1.0;
     for (int j = 0; j < count; ++j) {
-        if (b.gain[j] <= 0.0)
-            continue;
+        if (b.gain[j] <= 0.0) continue;
         const double loss = b.loss[j] - b.deposit[j];
         if (loss > negligible * b.gain[j])
             total += c.theta[j] = b.gain[j] / loss;
@@ -183,8 +179,7 @@ struct Act {
     void operator()(const Deposition& p) const {
         const double s = in.sticking(p.sticking, p.assistance);
         r.sticking[p.neutral] += p.coverage < 0 ? s : s * c.theta[p.coverage];
-        if (p.coverage >= 0)
-            return;
+        if (p.coverage >= 0) return;
         r.by_deposition -= s * in.neutral(p.neutral) / p.film_density;
         r.grown_material = p.film_material;
     }
@@ -209,8 +204,7 @@ SurfaceResponse respond(const Mechanism& mechanism, int material, const LocalArr
     double not_film = 1.0;
     for (int j = 0; j < count; ++j) {
         r.coverage[j] = c.theta[j];
-        if (balance.film_density[j] > 0.0)
-            not_film -= c.theta[j];
+        if (balance.film_density[j] > 0.0) not_film -= c.theta[j];
     }
     const Act act{in, c, std::fmax(not_film, 0.0), surface.density, r};
     for (const SurfaceProcess& p : surface.processes)
@@ -222,8 +216,7 @@ SurfaceResponse respond(const Mechanism& mechanism, int material, const LocalArr
     for (double& s : r.sticking)
         s = std::fmin(s, 1.0);
     r.rate = r.by_ion_enhanced + r.by_sputtering + r.by_spontaneous + r.by_deposition;
-    if (!(r.rate < 0.0))
-        r.grown_material = -1;
+    if (!(r.rate < 0.0)) r.grown_material = -1;
     return r;
 }
 
@@ -232,8 +225,7 @@ std::vector<int> deposited_materials(const Mechanism& mechanism) {
     for (const SurfaceChemistry& surface : mechanism.surfaces)
         for (const SurfaceProcess& process : surface.processes)
             if (const auto* deposition = std::get_if<Deposition>(&process))
-                if (deposition->film_material >= 0)
-                    found.push_back(deposition->film_material);
+                if (deposition->film_material >= 0) found.push_back(deposition->film_material);
     std::sort(found.begin(), found.end());
     found.erase(std::unique(found.begin(), found.end()), found.end());
     return found;

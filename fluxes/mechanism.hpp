@@ -24,12 +24,12 @@ enum class Standing { measured, published, from_memory, illustrative };
 
 /// How ions leave a wall they hit at grazing incidence.
 struct IonReflection {
-    double critical_deg = 60;   ///< below: no reflection
-    double exponent = 1;        ///< probability ((theta - critical)/(90 - critical))^exponent
-    double probability = 1;     ///< at grazing incidence
-    int collisions = 2;         ///< equal deflections of the binary-collision energy loss; 0 = none
+    double critical_deg = 60; ///< below: no reflection
+    double exponent = 1;      ///< probability ((theta - critical)/(90 - critical))^exponent
+    double probability = 1;   ///< at grazing incidence
+    int collisions = 2;       ///< equal deflections of the binary-collision energy loss; 0 = none
     double target_mass_amu = 28; ///< mass of a surface atom
-    double scatter_deg = 5;     ///< Gaussian scatter about the specular direction
+    double scatter_deg = 5;      ///< Gaussian scatter about the specular direction
 };
 
 struct SurfaceChemistry; // one material's processes: surface_chemistry.hpp
@@ -60,11 +60,12 @@ struct LocalArrivals {
 
 /// What the surface does there, in steady state.
 struct SurfaceResponse {
-    double rate = 0;                          ///< [nm/s] > 0 etching, < 0 growth of grown_material
-    int grown_material = -1;                  ///< material id of the film that grows, or -1
-    std::array<double, max_species> sticking{}; ///< probability that an impinging neutral stays, [0, 1]
+    double rate = 0;         ///< [nm/s] > 0 etching, < 0 growth of grown_material
+    int grown_material = -1; ///< material id of the film that grows, or -1
+    std::array<double, max_species>
+        sticking{}; ///< probability that an impinging neutral stays, [0, 1]
     std::array<double, max_species> coverage{}; ///< per coverage of the material, [0, 1]
-    double by_ion_enhanced = 0;               ///< parts of the rate [nm/s]
+    double by_ion_enhanced = 0;                 ///< parts of the rate [nm/s]
     double by_sputtering = 0;
     double by_spontaneous = 0;
     double by_deposition = 0; ///< <= 0

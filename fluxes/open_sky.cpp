@@ -21,8 +21,7 @@ double angle_near(double x, double z, double near) {
 double positive_part(const InPlane& plane, double alpha, double beta, double low, double high) {
     const auto sign = [&](double phi) { return alpha * std::cos(phi) + beta * std::sin(phi); };
     const bool at_low = sign(low) > 0, at_high = sign(high) > 0;
-    if (!at_low && !at_high)
-        return 0.0;
+    if (!at_low && !at_high) return 0.0;
     if (at_low != at_high) {
         const double root =
             std::clamp(std::atan2(beta < 0 ? alpha : -alpha, std::fabs(beta)), low, high);
@@ -62,13 +61,11 @@ void OpenSky::unroll(const geometry::Domain&, const geometry::Surface& surface) 
     int first = -1;
     const int count = static_cast<int>(surface.size());
     for (int e = 0; e < count && first < 0; ++e)
-        if (surface.chain[e] == 0 && (!mirror_ || surface.previous[e] < 0))
-            first = e;
+        if (surface.chain[e] == 0 && (!mirror_ || surface.previous[e] < 0)) first = e;
     RILLE_CHECK(first >= 0, "no part of the surface is open to the source");
     std::vector<int> order;
     for (int e = first; e >= 0; e = surface.next[e]) {
-        if (!order.empty() && e == first)
-            break;
+        if (!order.empty() && e == first) break;
         RILLE_CHECK(static_cast<int>(order.size()) < count, "the open surface never closes");
         order.push_back(e);
     }
@@ -79,12 +76,10 @@ void OpenSky::unroll(const geometry::Domain&, const geometry::Surface& surface) 
         const geometry::Vec3 b = surface.vertices[surface.corners[e][1]];
         double from = a.x, to = b.x;
         if (!mirror_) {
-            if (!base.empty())
-                from += period_ * std::round((base.back().x - from) / period_);
+            if (!base.empty()) from += period_ * std::round((base.back().x - from) / period_);
             to += period_ * std::round((from - to) / period_);
         }
-        if (base.empty())
-            base.push_back({from, a.z});
+        if (base.empty()) base.push_back({from, a.z});
         base.push_back({to, b.z});
     }
     const double span = base.back().x - base.front().x;
@@ -92,16 +87,12 @@ void OpenSky::unroll(const geometry::Domain&, const geometry::Surface& surface) 
                 "the open surface does not span the period");
     int top = 0;
     for (int i = 1; i < n; ++i)
-        if (base[i].z > base[top].z)
-            top = i;
-    if (mirror_ && base[n].z > base[top].z)
-        top = n;
+        if (base[i].z > base[top].z) top = i;
+    if (mirror_ && base[n].z > base[top].z) top = n;
     const auto image = [&](int j) {
         const int m = static_cast<int>(std::floor(double(j) / n)), r = j - m * n;
-        if (!mirror_)
-            return Point{base[r].x + m * period_, base[r].z};
-        if (m % 2 == 0)
-            return Point{base[r].x + m * period_, base[r].z};
+        if (!mirror_) return Point{base[r].x + m * period_, base[r].z};
+        if (m % 2 == 0) return Point{base[r].x + m * period_, base[r].z};
         return Point{2 * (x_min_ + period_) + (m - 1) * period_ - base[n - r].x, base[n - r].z};
     };
     const int total = mirror_ ? 2 * n : n;
@@ -136,8 +127,7 @@ OpenSky::Strings OpenSky::pull(const std::vector<Point>& point,
 /// string it touches the string; to the left of it, other parts of the surface may stand out.
 OpenSky::Tangent OpenSky::tangent(const std::vector<Point>& point, const Strings& strings,
                                   const Point& from, Tangent nearest) {
-    if (nearest.angle + pi < strings.angle[nearest.vertex])
-        return farthest(point, from, nearest);
+    if (nearest.angle + pi < strings.angle[nearest.vertex]) return farthest(point, from, nearest);
     while (strings.parent[nearest.vertex] >= 0 && strings.angle[nearest.vertex] > nearest.angle) {
         // Going along the string to its vertex turns the view of the next by less than pi.
         const double near = strings.angle[nearest.vertex];
@@ -166,8 +156,7 @@ OpenSky::Tangent OpenSky::farthest(const std::vector<Point>& point, const Point&
         bool larger = turns > best_turns;
         if (turns == best_turns)
             larger = is_right != (best.x >= 0) ? is_right : view.x * best.z - view.z * best.x > 0;
-        if (!larger)
-            continue;
+        if (!larger) continue;
         best = view;
         best_turns = turns;
         best_vertex = v;
@@ -176,10 +165,8 @@ OpenSky::Tangent OpenSky::farthest(const std::vector<Point>& point, const Point&
 }
 
 double OpenSky::flux(const InPlane& plane, int element) const {
-    if (!lit_[element])
-        return 0.0;
-    if (floating_pieces())
-        return flux_by_points(plane, element);
+    if (!lit_[element]) return 0.0;
+    if (floating_pieces()) return flux_by_points(plane, element);
     return flux_by_strings(plane, position_[element]) / length_[element];
 }
 
@@ -193,18 +180,14 @@ double OpenSky::flux_by_strings(const InPlane& plane, int position) const {
     for (int v = position; v >= 0; v = left_.parent[v]) {
         const double before = left_from.empty() ? HUGE_VAL : left_from.back();
         left_from.push_back(std::min(before, left_.parent[v] < 0 ? -HUGE_VAL : left_.angle[v]));
-        if (left_.parent[v] >= 0)
-            left.push_back(left_.parent[v]);
-        if (left_from.back() < -0.5 * pi)
-            break;
+        if (left_.parent[v] >= 0) left.push_back(left_.parent[v]);
+        if (left_from.back() < -0.5 * pi) break;
     }
     for (int v = last - (position + 1); v >= 0; v = right_.parent[v]) {
         const double before = right_to.empty() ? -HUGE_VAL : right_to.back();
         right_to.push_back(std::max(before, right_.parent[v] < 0 ? HUGE_VAL : -right_.angle[v]));
-        if (right_.parent[v] >= 0)
-            right.push_back(last - right_.parent[v]);
-        if (right_to.back() > 0.5 * pi)
-            break;
+        if (right_.parent[v] >= 0) right.push_back(last - right_.parent[v]);
+        if (right_to.back() > 0.5 * pi) break;
     }
     double sum = 0, phi = -0.5 * pi;
     std::size_t l = left_from.size() - 1, r = 0;
@@ -214,10 +197,8 @@ double OpenSky::flux_by_strings(const InPlane& plane, int position) const {
         while (r + 1 < right_to.size() && right_to[r] <= phi)
             ++r;
         double to = 0.5 * pi;
-        if (l > 0)
-            to = std::min(to, left_from[l - 1]);
-        if (r + 1 < right_to.size())
-            to = std::min(to, right_to[r]);
+        if (l > 0) to = std::min(to, left_from[l - 1]);
+        if (r + 1 < right_to.size()) to = std::min(to, right_to[r]);
         const Point &a = point_[left[l]], &b = point_[right[r]];
         sum += positive_part(plane, b.x - a.x, a.z - b.z, phi, to);
         phi = to;
@@ -226,10 +207,8 @@ double OpenSky::flux_by_strings(const InPlane& plane, int position) const {
 }
 
 std::vector<Visible> OpenSky::visible(int element, double part) const {
-    if (!lit_[element])
-        return {};
-    if (floating_pieces())
-        return visible_by_segments(element, part);
+    if (!lit_[element]) return {};
+    if (floating_pieces()) return visible_by_segments(element, part);
     const int i = position_[element], last = static_cast<int>(point_.size()) - 1;
     const Point &a = point_[i], &b = point_[i + 1];
     const Point here{a.x + part * (b.x - a.x), a.z + part * (b.z - a.z)};
@@ -246,8 +225,7 @@ std::vector<Visible> OpenSky::visible(int element, double part) const {
         seen.high = std::min(seen.high,
                              -tangent(reflected_, right_, flipped, {last - (i + 2), angle}).angle);
     }
-    if (!(seen.low < seen.high))
-        return {};
+    if (!(seen.low < seen.high)) return {};
     return {seen};
 }
 
@@ -271,31 +249,24 @@ void OpenSky::find_floating(const geometry::Domain&, const geometry::Surface& su
     for (int chain = 1; chain < chains; ++chain) {
         int member = -1;
         for (int e = 0; e < count && member < 0; ++e)
-            if (surface.chain[e] == chain)
-                member = e;
-        if (member < 0)
-            continue;
+            if (surface.chain[e] == chain) member = e;
+        if (member < 0) continue;
         // Straight up from a point of the piece: an even number of crossings of chain 0 means that
         // it lies on the gas side of it. (What a floating piece encloses is hidden by the piece.)
         const Point from{0.5 * (segment_[member].a.x + segment_[member].b.x),
                          0.5 * (segment_[member].a.z + segment_[member].b.z)};
         int crossings = 0;
         for (int e = 0; e < count; ++e) {
-            if (surface.chain[e] != 0)
-                continue;
+            if (surface.chain[e] != 0) continue;
             for (int k = -1; k <= 1; ++k) {
                 const double ax = segment_[e].a.x + k * period_, bx = segment_[e].b.x + k * period_;
-                if (mirror_ && k != 0)
-                    continue;
-                if ((ax <= from.x) == (bx <= from.x))
-                    continue;
+                if (mirror_ && k != 0) continue;
+                if ((ax <= from.x) == (bx <= from.x)) continue;
                 const double t = (from.x - ax) / (bx - ax);
-                if (segment_[e].a.z + t * (segment_[e].b.z - segment_[e].a.z) > from.z)
-                    ++crossings;
+                if (segment_[e].a.z + t * (segment_[e].b.z - segment_[e].a.z) > from.z) ++crossings;
             }
         }
-        if (crossings % 2 != 0)
-            continue;
+        if (crossings % 2 != 0) continue;
         for (int e = 0; e < count; ++e)
             if (surface.chain[e] == chain) {
                 lit_[e] = 1;
@@ -312,21 +283,16 @@ std::vector<Visible> OpenSky::visible_by_segments(int element, double part) cons
     const auto hide = [&](Point a, Point b) {
         double from = std::atan2(a.x - here.x, a.z - here.z);
         double to = from + std::remainder(std::atan2(b.x - here.x, b.z - here.z) - from, 2 * pi);
-        if (from > to)
-            std::swap(from, to);
+        if (from > to) std::swap(from, to);
         hidden.push_back({from, to});
-        if (from < -pi)
-            hidden.push_back({from + 2 * pi, to + 2 * pi});
-        if (to > pi)
-            hidden.push_back({from - 2 * pi, to - 2 * pi});
+        if (from < -pi) hidden.push_back({from + 2 * pi, to + 2 * pi});
+        if (to > pi) hidden.push_back({from - 2 * pi, to - 2 * pi});
     };
     for (std::size_t e = 0; e < segment_.size(); ++e) {
-        if (!lit_[e])
-            continue;
+        if (!lit_[e]) continue;
         const Segment& s = segment_[e];
         for (int k = -images; k <= images; ++k) {
-            if (k == 0 && static_cast<int>(e) == element)
-                continue;
+            if (k == 0 && static_cast<int>(e) == element) continue;
             const double shift = k * period_;
             if (!mirror_ || k % 2 == 0) {
                 hide({s.a.x + shift, s.a.z}, {s.b.x + shift, s.b.z});
@@ -342,12 +308,10 @@ std::vector<Visible> OpenSky::visible_by_segments(int element, double part) cons
     std::vector<Visible> seen;
     double from = -0.5 * pi;
     for (const Visible& h : hidden) {
-        if (h.low > from && from < 0.5 * pi)
-            seen.push_back({from, std::min(h.low, 0.5 * pi)});
+        if (h.low > from && from < 0.5 * pi) seen.push_back({from, std::min(h.low, 0.5 * pi)});
         from = std::max(from, h.high);
     }
-    if (from < 0.5 * pi)
-        seen.push_back({from, 0.5 * pi});
+    if (from < 0.5 * pi) seen.push_back({from, 0.5 * pi});
     return seen;
 }
 

@@ -66,8 +66,7 @@ private:
     std::vector<Chunk> plan() const {
         std::vector<Chunk> chunks;
         for (int s = 0; s < static_cast<int>(ions_.size()); ++s) {
-            if (!(ions_[s].flux > 0) || options_.ions_per_species <= 0)
-                continue;
+            if (!(ions_[s].flux > 0) || options_.ions_per_species <= 0) continue;
             for (int b = 0; b < batches; ++b)
                 for (int first = 0; first < per_batch_; first += chunk_ions) {
                     chunks.emplace_back();
@@ -101,22 +100,17 @@ private:
         double weight = 1, energy = ion.energy_ev;
         Hit hit = caster_.trace(start, ion.direction, -1);
         for (int hits = 0;; ++hits) {
-            if (hit.kind == Hit::Kind::lost || hits == longest_path)
-                chunk.lost += weight;
-            if (hit.kind != Hit::Kind::surface || hits == longest_path)
-                return;
+            if (hit.kind == Hit::Kind::lost || hits == longest_path) chunk.lost += weight;
+            if (hit.kind != Hit::Kind::surface || hits == longest_path) return;
             const Vec3 mean = normal_[hit.element];
             const double cosine = std::clamp(-hit.direction.dot(mean), 0.0, 1.0);
-            if (hits > 0)
-                deposit(chunk, hit.element, weight, energy, cosine);
+            if (hits > 0) deposit(chunk, hit.element, weight, energy, cosine);
             const IonReflection& law = reflection_[material_[hit.element]];
             weight *= reflection_probability(law, cosine);
             energy *= energy_kept(law, ions_[chunk.ion].mass_amu, cosine);
-            if (!(weight > 0) || !can_act(chunk.ion, energy))
-                return;
+            if (!(weight > 0) || !can_act(chunk.ion, energy)) return;
             if (weight < roulette_below) {
-                if (unit_interval(stream_key(key, hits, 7)) * roulette_below >= weight)
-                    return;
+                if (unit_interval(stream_key(key, hits, 7)) * roulette_below >= weight) return;
                 weight = roulette_below;
             }
             const Vec3 out = reflected_direction(
@@ -137,11 +131,9 @@ private:
         const double flux =
             weight * ions_[chunk.ion].flux * base / (per_batch_ * surface_.area[element]);
         for (std::size_t m = 0; m < tallies_.size(); ++m) {
-            if (tallies_[m].ion != chunk.ion)
-                continue;
+            if (tallies_[m].ion != chunk.ion) continue;
             const double value = flux * tallies_[m].yield(energy, cosine);
-            if (value != 0)
-                chunk.deposits.push_back({m * surface_.size() + element, value});
+            if (value != 0) chunk.deposits.push_back({m * surface_.size() + element, value});
         }
     }
 

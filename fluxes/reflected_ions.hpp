@@ -16,7 +16,8 @@ namespace rille::fluxes {
 struct ReflectedIons {
     /// value[b][m * elements + e]: tally m at element e by batch b [nm^-2 s^-1].
     std::vector<std::vector<double>> value;
-    double lost_share = 0; ///< ion flux lost to roulette bookkeeping or lost rays, share of incident
+    double lost_share =
+        0; ///< ion flux lost to roulette bookkeeping or lost rays, share of incident
 };
 
 struct ReflectionOptions {
@@ -26,7 +27,8 @@ struct ReflectionOptions {
 };
 
 /// Forward tracing in fixed chunks, each with its own buffer, summed in order. `reflection[m]` is
-/// the law of material m; material[e] the material at each element. Direct arrivals are not tallied.
+/// the law of material m; material[e] the material at each element. Direct arrivals are not
+/// tallied.
 ReflectedIons trace_reflected(const geometry::Domain&, const geometry::Surface&,
                               const geometry::RayCaster&, const std::vector<int>& material,
                               const std::vector<IonSource>&, const std::vector<Tally>&,

@@ -68,8 +68,7 @@ private:
     static std::uint32_t second_dimension(std::uint32_t index) {
         std::uint32_t value = 0;
         for (std::uint32_t v = 0x80000000u; index; index >>= 1, v ^= v >> 1)
-            if (index & 1)
-                value ^= v;
+            if (index & 1) value ^= v;
         return value;
     }
     /// A permutation in which each bit is changed by lower bits only. Adding a constant, adding an

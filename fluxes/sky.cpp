@@ -63,8 +63,7 @@ private:
     }
 
     void go_to(const Point& to) {
-        if (to.x == 0 && to.z == 0)
-            return; // the eye itself
+        if (to.x == 0 && to.z == 0) return; // the eye itself
         const double now = cross(best_, to);
         const bool even = half_turns_ % 2 == 0;
         if (even ? now > 0 : now < 0) {
@@ -75,8 +74,7 @@ private:
                                  0;
             half_turns_ += even == forward ? -1 : 1;
             if (half_turns_ < 0) {
-                if (best_.x >= 0 && to.x < 0)
-                    ++turns_;
+                if (best_.x >= 0 && to.x < 0) ++turns_;
                 best_ = {to.x + 0.0, to.z}; // no negative zero: it would turn pi into -pi
                 half_turns_ = 0;
             }
@@ -98,8 +96,7 @@ Sky::Sky(const geometry::Domain& domain, const geometry::Surface& surface)
     const int n = static_cast<int>(surface.size());
     int first = -1;
     for (int e = 0; e < n && (first < 0 || surface.previous[first] >= 0); ++e)
-        if (surface.chain[e] == 0 && (first < 0 || surface.previous[e] < 0))
-            first = e;
+        if (surface.chain[e] == 0 && (first < 0 || surface.previous[e] < 0)) first = e;
     double shift = 0;
     for (int e = first; e >= 0 && position_[e] < 0; e = surface.next[e]) {
         const auto a = surface.vertices[surface.corners[e][0]];
@@ -147,15 +144,12 @@ double Sky::horizon(int element, double t, bool rightwards) const {
 }
 
 SkyInterval Sky::between(int element, double t_left, double t_right) const {
-    if (!covers(element))
-        return {};
+    if (!covers(element)) return {};
     SkyInterval sky;
     sky.left = std::max(horizon(element, t_left, false), -pi / 2);
-    if (!(sky.left < pi / 2))
-        return {};
+    if (!(sky.left < pi / 2)) return {};
     sky.right = std::min(horizon(element, t_right, true), pi / 2);
-    if (sky.dark())
-        return {};
+    if (sky.dark()) return {};
     return sky;
 }
 
@@ -168,8 +162,7 @@ SkyInterval Sky::common(int element) const {
 }
 
 double Sky::cosine_flux(int element) const {
-    if (!covers(element))
-        return 0;
+    if (!covers(element)) return 0;
     const int k = position_[element];
     const double psi = std::atan2(path_[k].z - path_[k + 1].z, path_[k + 1].x - path_[k].x);
     // Gauss-Legendre, three points: the flux is smooth along a segment but for kinks where the

@@ -68,15 +68,14 @@ IonArrivals gather_ions(const Setting& s, const std::vector<IonReflection>& refl
     ions.reflected.assign(n * m, 0);
     ions.total.assign(n * m, 0);
     ions.batch.assign(batches, std::vector<double>(n * m, 0));
-    if (s.sources.ions.empty())
-        return ions;
+    if (s.sources.ions.empty()) return ions;
     const Sampling& sampling = s.sampling;
     if (previous && previous->ion_tables &&
         previous->ion_tables->serves(s.domain.symmetry, s.sources.ions, s.mechanism.tallies))
         ions.tables = previous->ion_tables;
     else
-        ions.tables = std::make_shared<IonTables>(s.domain.symmetry, s.sources.ions,
-                                                  s.mechanism.tallies);
+        ions.tables =
+            std::make_shared<IonTables>(s.domain.symmetry, s.sources.ions, s.mechanism.tallies);
     ions.direct.emplace(
         s.domain, s.surface, s.caster, ions.tables,
         DirectIons::Options{sampling.ion_directions, sampling.seed, sampling.refresh});
@@ -108,8 +107,7 @@ CoupledArrivals gather_neutrals(const Setting& s, const IonArrivals& ions,
                                 const SurfaceStep* previous) {
     CoupledArrivals none;
     none.batch_flux.resize(batches);
-    if (s.sources.neutrals.empty())
-        return none;
+    if (s.sources.neutrals.empty()) return none;
     std::vector<double> open;
     for (const NeutralSource& source : s.sources.neutrals)
         open.push_back(source.flux);
@@ -171,8 +169,7 @@ void respond_everywhere(const Setting& s, const IonArrivals& ions,
         const auto neutrals = at_element(step.neutral, e);
         const SurfaceResponse r = s.respond_at(material, ions.at(e, -1), neutrals.data());
         step.response[e] = r;
-        if (r.rate < 0)
-            step.growth_material[e] = r.grown_material;
+        if (r.rate < 0) step.growth_material[e] = r.grown_material;
         for (int b = 0; b < batches; ++b) {
             const auto of_batch = at_element(batch_flux[b], e);
             step.rate_batch[b][e] = s.respond_at(material, ions.at(e, b), of_batch.data()).rate;

@@ -49,8 +49,8 @@ struct SurfaceStep {
     std::vector<int> growth_material; ///< film material that grows on the element, or -1
     /// Ion tables of the plasma state: the next step with the same ions takes them from here.
     std::shared_ptr<const IonTables> ion_tables;
-    int iterations = 0;               ///< of transport and kinetics against each other
-    double residual = 0;              ///< largest change of a sticking probability in the last one
+    int iterations = 0;  ///< of transport and kinetics against each other
+    double residual = 0; ///< largest change of a sticking probability in the last one
 };
 
 /// Transport and kinetics iterated to convergence of every sticking probability (1e-6), throws

@@ -56,29 +56,25 @@ struct EnergyYield {
 
     double operator()(const ConstantLaw& law) const { return law.value; }
     double operator()(const SquareRootLaw& law) const {
-        if (energy <= law.threshold_ev)
-            return 0.0;
+        if (energy <= law.threshold_ev) return 0.0;
         return law.amplitude * (std::sqrt(energy) - std::sqrt(law.threshold_ev));
     }
     double operator()(const YamamuraTawaraLaw& law) const {
         const double threshold = yamamura_tawara_threshold(law);
-        if (energy <= threshold)
-            return 0.0;
+        if (energy <= threshold) return 0.0;
         const YamamuraTawaraTerms t = yamamura_tawara_terms(law, energy);
         const double collisions = 0.042 * law.q * t.alpha / law.us_ev * t.stopping_ev_a2;
         return collisions / (1.0 + t.big_gamma * t.ke * std::pow(t.eps, 0.3)) *
                std::pow(1.0 - std::sqrt(threshold / energy), law.s);
     }
     double operator()(const BohdanskyLaw& law) const {
-        if (energy <= law.threshold_ev)
-            return 0.0;
+        if (energy <= law.threshold_ev) return 0.0;
         const double x = law.threshold_ev / energy;
         return law.q * reduced_stopping(energy / law.etf_ev) * (1.0 - std::cbrt(x * x)) *
                (1.0 - x) * (1.0 - x);
     }
     double operator()(const EcksteinLaw& law) const {
-        if (energy <= law.threshold_ev)
-            return 0.0;
+        if (energy <= law.threshold_ev) return 0.0;
         const double e = law.eps_per_ev * energy;
         const double w = e + 0.1728 * std::sqrt(e) + 0.008 * std::pow(e, 0.1504);
         const double stopping = 0.5 * std::log1p(1.2288 * e) / w; // Kr-C potential
@@ -169,14 +165,12 @@ YieldFunction shared_by_atoms(const YieldFunction& yield, double atoms) {
 }
 
 double angle_factor(const AngleLaw& law, double cos_incidence) {
-    if (cos_incidence <= 0.0)
-        return 0.0;
+    if (cos_incidence <= 0.0) return 0.0;
     return std::visit(AngleFactor{std::fmin(cos_incidence, 1.0)}, law);
 }
 
 double YieldFunction::operator()(double energy_ev, double cos_incidence) const {
-    if (cos_incidence <= 0.0)
-        return 0.0;
+    if (cos_incidence <= 0.0) return 0.0;
     return scale * energy_yield(energy, energy_ev) * angle_factor(angle, cos_incidence);
 }
 

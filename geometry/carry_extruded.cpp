@@ -50,8 +50,7 @@ private:
         chain_of_.resize(to_.size());
         longest_ = 0;
         for (int e = 0; e < static_cast<int>(to_.size()); ++e) {
-            if (e == 0 || to_.chain[e] != to_.chain[e - 1])
-                chains_.push_back({e, e, false, 0});
+            if (e == 0 || to_.chain[e] != to_.chain[e - 1]) chains_.push_back({e, e, false, 0});
             chain_of_[e] = static_cast<int>(chains_.size()) - 1;
             chains_.back().last = e + 1;
             arc_[e + 1] = arc_[e] + to_.area[e];
@@ -86,10 +85,8 @@ private:
         const Vec3 na = from_.normal[a], nb = from_.normal[b];
         const double ma = task_.moved[a], mb = task_.moved[b];
         const double c = na.dot(nb), determinant = 1 - c * c;
-        if (determinant < 0.05 && c > 0)
-            return (na + nb) * (-(ma + mb) / (na + nb).length2());
-        if (determinant < 0.05)
-            return (na * ma + nb * mb) * -0.5;
+        if (determinant < 0.05 && c > 0) return (na + nb) * (-(ma + mb) / (na + nb).length2());
+        if (determinant < 0.05) return (na * ma + nb * mb) * -0.5;
         return (na * (ma - c * mb) + nb * (mb - c * ma)) * (-1 / determinant);
     }
 
@@ -112,14 +109,12 @@ private:
                     best.arc = t >= 1 ? arc_[e + 1] : arc_[e] + t * to_.area[e];
                 }
             });
-            if (radius > 1e9 * mean_)
-                break;
+            if (radius > 1e9 * mean_) break;
         }
         return best;
     }
     Vec3 nearest(Vec3 d) const {
-        if (task_.period_x > 0)
-            d.x -= task_.period_x * std::round(d.x / task_.period_x);
+        if (task_.period_x > 0) d.x -= task_.period_x * std::round(d.x / task_.period_x);
         return d;
     }
 
@@ -136,36 +131,28 @@ private:
         }
         for (int e = 0; e < size; ++e) { // joined across the seam of a loop
             const int before = from_.previous[e];
-            if (before >= 0 && before != e - 1)
-                high_[before] = low_[e];
+            if (before >= 0 && before != e - 1) high_[before] = low_[e];
         }
     }
 
     /// The ends of a chain stay its ends.
     void snap(Place& p, bool start, bool end = false) const {
-        if (p.element < 0)
-            return;
+        if (p.element < 0) return;
         const Chain& c = chains_[p.chain];
-        if (c.closed)
-            return;
-        if (start && p.element == c.first)
-            p.arc = arc_[c.first];
-        if (end && p.element == c.last - 1)
-            p.arc = arc_[c.last];
+        if (c.closed) return;
+        if (start && p.element == c.first) p.arc = arc_[c.first];
+        if (end && p.element == c.last - 1) p.arc = arc_[c.last];
     }
 
     /// Signed length of the new chain that old element e covers; false if it was torn.
     bool covered(int e, double& length) const {
         const Place &a = low_[e], &b = high_[e];
-        if (a.chain != b.chain)
-            return false;
+        if (a.chain != b.chain) return false;
         const Chain& c = chains_[a.chain];
         length = b.arc - a.arc;
         if (c.closed) {
-            if (length > 0.5 * c.length)
-                length -= c.length;
-            if (length < -0.5 * c.length)
-                length += c.length;
+            if (length > 0.5 * c.length) length -= c.length;
+            if (length < -0.5 * c.length) length += c.length;
         }
         return std::fabs(length) <= 3 * from_.area[e] + 4 * std::fabs(task_.moved[e]) + 4 * mean_;
     }
@@ -199,8 +186,7 @@ private:
         while (rest > 0) {
             if (at >= arc_[j + 1]) { // next element, round a loop
                 if (++j >= c.last) {
-                    if (!c.closed)
-                        break;
+                    if (!c.closed) break;
                     j = c.first;
                     at = arc_[j];
                 }
@@ -220,15 +206,12 @@ private:
         std::vector<std::vector<std::pair<double, int>>> knots(chains_.size());
         for (int e = 0; e < static_cast<int>(old.size()); ++e) {
             double length = 0;
-            if (!covered(e, length))
-                continue;
+            if (!covered(e, length)) continue;
             const Chain& c = chains_[low_[e].chain];
             double arc = length == high_[e].arc - low_[e].arc ? 0.5 * (low_[e].arc + high_[e].arc)
                                                               : low_[e].arc + 0.5 * length;
-            if (c.closed && arc >= arc_[c.last])
-                arc -= c.length;
-            if (c.closed && arc < arc_[c.first])
-                arc += c.length;
+            if (c.closed && arc >= arc_[c.last]) arc -= c.length;
+            if (c.closed && arc < arc_[c.first]) arc += c.length;
             knots[low_[e].chain].push_back({arc, e});
         }
         for (auto& k : knots)
@@ -242,8 +225,7 @@ private:
 
     double interpolate(const std::vector<std::pair<double, int>>& knots, const Chain& c, double arc,
                        const Vec3& centre, const std::vector<double>& old) const {
-        if (knots.empty())
-            return old[nearest_old(centre)];
+        if (knots.empty()) return old[nearest_old(centre)];
         const int size = static_cast<int>(knots.size());
         int after = static_cast<int>(
             std::lower_bound(knots.begin(), knots.end(), std::pair<double, int>{arc, -1}) -
@@ -251,8 +233,7 @@ private:
         int before = after - 1;
         double low = 0, high = 0;
         if (after == size || before < 0) {
-            if (!c.closed)
-                return old[knots[after == size ? size - 1 : 0].second];
+            if (!c.closed) return old[knots[after == size ? size - 1 : 0].second];
             low = knots[size - 1].first - (before < 0 ? c.length : 0);
             high = knots[0].first + (before < 0 ? 0 : c.length);
             before = size - 1;

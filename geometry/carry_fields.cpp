@@ -14,8 +14,7 @@ void carry_fields(const Surface& from, const Surface& to, const std::vector<doub
         RILLE_CHECK(f->value.size() == from.size(),
                     "field " + f->name + " does not fit its surface");
     const bool idle = std::all_of(moved.begin(), moved.end(), [](double m) { return m == 0; });
-    if (idle && from.vertices == to.vertices && from.corners == to.corners)
-        return;
+    if (idle && from.vertices == to.vertices && from.corners == to.corners) return;
     if (from.size() == 0 || to.size() == 0) {
         for (SurfaceField* f : fields)
             f->value.assign(to.size(), 0);

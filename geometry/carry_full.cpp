@@ -30,8 +30,7 @@ public:
     void run() {
         for (SurfaceField* f : task_.fields) {
             std::vector<double> now = means(f->value);
-            if (f->carry == Carry::per_area)
-                conserve(f->value, now);
+            if (f->carry == Carry::per_area) conserve(f->value, now);
             f->value = std::move(now);
         }
     }
@@ -53,8 +52,7 @@ private:
 
     double weight(int e, int j, const Vec3& d, double radius) const {
         const double facing = from_.normal[e].dot(to_.normal[j]);
-        if (facing <= 0)
-            return 0;
+        if (facing <= 0) return 0;
         const double t = 1 - d.length() / (radius * size_);
         return t <= 0 ? 0 : facing * t * t;
     }
@@ -68,8 +66,7 @@ private:
                 double sum = 0;
                 int same = -1;
                 old_bins_.near(to_.centre[j], narrow * size_, [&](int e, const Vec3& d) {
-                    if (d == Vec3(0, 0, 0) && from_.normal[e] == to_.normal[j])
-                        same = e;
+                    if (d == Vec3(0, 0, 0) && from_.normal[e] == to_.normal[j]) same = e;
                     sum += weight(e, static_cast<int>(j), d, narrow);
                 });
                 total_[j] = sum;
@@ -93,8 +90,7 @@ private:
                 });
         });
         for (std::size_t j = 0; j < to_.size(); ++j)
-            if (single_[j] >= 0)
-                share_[single_[j]] += to_.area[j];
+            if (single_[j] >= 0) share_[single_[j]] += to_.area[j];
     }
 
     std::vector<double> means(const std::vector<double>& old) const {
@@ -120,8 +116,7 @@ private:
         over_ranges(from_.size(), grain, [&](std::size_t first, std::size_t last) {
             for (std::size_t e = first; e < last; ++e) {
                 excess[e] = old[e] * (from_.area[e] - share_[e]);
-                if (excess[e] == 0)
-                    continue;
+                if (excess[e] == 0) continue;
                 double sum = 0;
                 new_bins_.near(foot_[e], wide * size_, [&](int j, const Vec3& d) {
                     sum += weight(static_cast<int>(e), j, d, wide) * to_.area[j] * now[j];
@@ -136,8 +131,7 @@ private:
                 old_bins_.near(to_.centre[j], wide * size_, [&](int e, const Vec3& d) {
                     sum += scale[e] * weight(e, static_cast<int>(j), d, wide);
                 });
-                if (sum != 0)
-                    next[j] = now[j] + sum * now[j];
+                if (sum != 0) next[j] = now[j] + sum * now[j];
             }
         });
         for (std::size_t e = 0; e < from_.size(); ++e) // nothing near to share it with
@@ -151,10 +145,8 @@ private:
 
     /// Overshoots below zero are rare; lifting them is paid for by all in proportion.
     void keep_positive(const std::vector<double>& old, std::vector<double>& now) const {
-        if (std::none_of(now.begin(), now.end(), [](double v) { return v < 0; }))
-            return;
-        if (std::any_of(old.begin(), old.end(), [](double v) { return v < 0; }))
-            return;
+        if (std::none_of(now.begin(), now.end(), [](double v) { return v < 0; })) return;
+        if (std::any_of(old.begin(), old.end(), [](double v) { return v < 0; })) return;
         double before = 0, after = 0;
         for (std::size_t e = 0; e < old.size(); ++e)
             before += old[e] * from_.area[e];

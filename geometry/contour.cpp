@@ -9,8 +9,7 @@ namespace rille::geometry {
 namespace {
 
 double minmod(double a, double b) {
-    if (a * b <= 0)
-        return 0;
+    if (a * b <= 0) return 0;
     return std::fabs(a) < std::fabs(b) ? a : b;
 }
 
@@ -27,15 +26,11 @@ public:
         const int last = band_.domain.cells_x - 1;
         for (int c = 0; c < static_cast<int>(band_.size()); ++c) {
             const int up = band_.neighbour[c][5];
-            if (up < 0)
-                continue;
+            if (up < 0) continue;
             const int i = band_.cells[c].i;
-            if (!mirror_ || i < last)
-                inner_cell(c, up);
-            if (mirror_ && i == 0)
-                side_cell(c, up, -1);
-            if (mirror_ && i == last)
-                side_cell(c, up, +1);
+            if (!mirror_ || i < last) inner_cell(c, up);
+            if (mirror_ && i == 0) side_cell(c, up, -1);
+            if (mirror_ && i == last) side_cell(c, up, +1);
         }
         return collect();
     }
@@ -45,8 +40,7 @@ private:
     /// third order where phi is smooth and even.
     double side_value(int c, int side) const {
         const int one = band_.neighbour[c][side < 0 ? 1 : 0];
-        if (one < 0 || one == c)
-            return band_.phi[c];
+        if (one < 0 || one == c) return band_.phi[c];
         const double slope = band_.phi[one] - band_.phi[c];
         const int two = band_.neighbour[one][side < 0 ? 1 : 0];
         const double bend = two < 0 || two == one
@@ -58,8 +52,7 @@ private:
     void inner_cell(int c, int up) {
         const int right = band_.neighbour[c][1];
         const int diagonal = band_.neighbour[up][1];
-        if (right < 0 || diagonal < 0)
-            return;
+        if (right < 0 || diagonal < 0) return;
         const bool wraps = band_.cells[right].i <= band_.cells[c].i;
         const double phi[4] = {band_.phi[c], band_.phi[right], band_.phi[diagonal], band_.phi[up]};
         const int key[4] = {4 * c, 4 * right + 1, 4 * up, 4 * c + 1};
@@ -87,8 +80,7 @@ private:
         int enters[2], leaves[2], in = 0, out = 0;
         for (int m = 0; m < 4; ++m) {
             const bool gas = phi[m] >= 0, gas_next = phi[(m + 1) % 4] >= 0;
-            if (gas == gas_next)
-                continue;
+            if (gas == gas_next) continue;
             // Going anticlockwise the interior lies to the left, so the path inwards through an
             // edge has the edge's start on its left.
             if (gas)
@@ -96,10 +88,8 @@ private:
             else
                 leaves[out++] = m;
         }
-        if (in == 0)
-            return;
-        if (in == 1)
-            return join(key, enters[0], leaves[0], wraps);
+        if (in == 0) return;
+        if (in == 1) return join(key, enters[0], leaves[0], wraps);
         const bool gas_joined = phi[0] + phi[1] + phi[2] + phi[3] >= 0;
         // Joined gas: the segment goes round the solid corner at the end of the entered edge.
         for (int m = 0; m < 2; ++m) {
@@ -123,12 +113,9 @@ private:
         Vec3 p = band_.domain.node(cell.i, 0, cell.k);
         const auto share = [](double a, double b) { return a / (a - b); };
         const int up = band_.neighbour[c][5];
-        if (kind == 0)
-            p.x += h_ * share(band_.phi[c], band_.phi[band_.neighbour[c][1]]);
-        if (kind == 1)
-            p.z += h_ * share(band_.phi[c], band_.phi[up]);
-        if (kind == 2)
-            p.x += side * 0.5 * h_ * share(band_.phi[c], side_value(c, side));
+        if (kind == 0) p.x += h_ * share(band_.phi[c], band_.phi[band_.neighbour[c][1]]);
+        if (kind == 1) p.z += h_ * share(band_.phi[c], band_.phi[up]);
+        if (kind == 2) p.x += side * 0.5 * h_ * share(band_.phi[c], side_value(c, side));
         if (kind == 3) {
             p.x = side * 0.5 * band_.domain.width_x();
             p.z += h_ * share(side_value(c, side), side_value(up, side));
@@ -146,8 +133,7 @@ private:
             q.p.x += period * band_.domain.width_x();
             q.fixed = mirror_ && key % 4 == 3;
             chain.points.push_back(q);
-            if (after_[key] < 0)
-                break;
+            if (after_[key] < 0) break;
             period += step_[key];
             key = after_[key];
             if (key == first) {
@@ -187,10 +173,8 @@ void merge_slivers(ContourChain& chain, double shortest) {
     auto& points = chain.points;
     const auto at = [&](int n) {
         const int size = static_cast<int>(points.size());
-        if (n < 0)
-            return points[n + size].p - Vec3(chain.shift, 0, 0);
-        if (n >= size)
-            return points[n - size].p + Vec3(chain.shift, 0, 0);
+        if (n < 0) return points[n + size].p - Vec3(chain.shift, 0, 0);
+        if (n >= size) return points[n - size].p + Vec3(chain.shift, 0, 0);
         return points[n].p;
     };
     const auto removable = [&](int n) {

@@ -96,8 +96,7 @@ double sharp_turn(const Padded& c, double s) {
     const double left = turn(l2 - l3, l1 - l2), right = turn(r2 - r1, r3 - r2);
     const double bend = left * right <= 0 ? 0 : std::fabs(left) < std::fabs(right) ? left : right;
     const double smooth = 2.5 * bend;
-    if (smooth * raw <= 0)
-        return raw;
+    if (smooth * raw <= 0) return raw;
     return std::fabs(smooth) >= std::fabs(raw) ? 0 : raw - smooth;
 }
 
@@ -126,15 +125,12 @@ Line fit_side(const Padded& c, const RebuiltCorner& corner, int direction, doubl
              n += direction) {
             const double arc = direction * (c.s[n] - s),
                          distance = (c.p[n] - corner.p).length() / h;
-            if (arc > limit || arc > far + 1.5)
-                break;
-            if (distance < skip || distance > far)
-                continue;
+            if (arc > limit || arc > far + 1.5) break;
+            if (distance < skip || distance > far) continue;
             used.push_back(c.p[n]);
             mean += c.p[n];
         }
-        if (used.size() < 2)
-            continue;
+        if (used.size() < 2) continue;
         mean /= static_cast<double>(used.size());
         double xx = 0, xz = 0, zz = 0;
         for (const Vec3& q : used) {
@@ -146,10 +142,8 @@ Line fit_side(const Padded& c, const RebuiltCorner& corner, int direction, doubl
         const double angle = 0.5 * std::atan2(2 * xz, xx - zz);
         Line line{mean, Vec3(std::cos(angle), 0, std::sin(angle)), true};
         const Vec3 walk = (used.back() - used.front()) * direction;
-        if (walk.length() < 0.3 * h)
-            continue;
-        if (line.along.dot(walk) < 0)
-            line.along = -line.along;
+        if (walk.length() < 0.3 * h) continue;
+        if (line.along.dot(walk) < 0) line.along = -line.along;
         return line;
     }
     return {};
@@ -162,18 +156,15 @@ bool intersect(const Padded& c, double h, double room_left, double room_right, R
     for (int round = 0; round < 3; ++round) {
         out.left = fit_side(c, out, -1, h, room_left);
         out.right = fit_side(c, out, +1, h, room_right);
-        if (!out.left.good || !out.right.good)
-            return false;
+        if (!out.left.good || !out.right.good) return false;
         const Vec3 a = out.left.along, b = out.right.along;
         const double sine = a.x * b.z - a.z * b.x;
         const double turned = turn(a, b);
-        if (std::fabs(turned) < threshold || std::fabs(sine) < 0.1)
-            return false;
+        if (std::fabs(turned) < threshold || std::fabs(sine) < 0.1) return false;
         out.near = disturbed(turned);
         const Vec3 d = out.right.point - out.left.point;
         out.p = out.left.point + a * ((d.x * b.z - d.z * b.x) / sine);
-        if ((out.p - raw).length() > 2.0 * out.near * h)
-            return false;
+        if ((out.p - raw).length() > 2.0 * out.near * h) return false;
     }
     return true;
 }
@@ -186,11 +177,9 @@ std::vector<double> corner_arcs(const Padded& c) {
     std::vector<Sample> samples;
     for (std::size_t n = 1; n < c.s.size(); ++n) {
         const double middle = 0.5 * (c.s[n - 1] + c.s[n]);
-        if (middle < -spacing || middle > c.length + spacing)
-            continue;
+        if (middle < -spacing || middle > c.length + spacing) continue;
         const double size = std::fabs(sharp_turn(c, middle));
-        if (size > threshold)
-            samples.push_back({middle, size});
+        if (size > threshold) samples.push_back({middle, size});
     }
     std::vector<double> arcs;
     while (!samples.empty()) {
@@ -221,8 +210,7 @@ bool settle(Vec3& p, double s, const RebuiltCorner& corner, double h) {
     const bool left = s < corner.s;
     const Line& line = left ? corner.left : corner.right;
     const double along = (p - corner.p).dot(line.along) * (left ? -1 : 1);
-    if (along < 0.25 * h)
-        return false;
+    if (along < 0.25 * h) return false;
     p = corner.p + line.along * (left ? -along : along);
     return true;
 }
@@ -274,8 +262,10 @@ std::vector<ContourPoint> with_corners(const ContourChain& chain, const Padded& 
         bool keep = true;
         for (const RebuiltCorner& c : corners) {
             if (std::fabs(s - c.s) > 2 * c.near || (q.p - c.p).length() > c.near * h) continue;
-            if (!q.fixed) keep = settle(q.p, s, c, h) && keep;
-            else if (std::fabs(c.p.x - q.p.x) < 0.3 * h) q.p.z = c.p.z;
+            if (!q.fixed)
+                keep = settle(q.p, s, c, h) && keep;
+            else if (std::fabs(c.p.x - q.p.x) < 0.3 * h)
+                q.p.z = c.p.z;
         }
         if (keep) rebuilt.push_back(q);
     }

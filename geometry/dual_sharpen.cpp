@@ -42,15 +42,12 @@ struct LocalSolid {
     }
     double value(const Vec3& p) const {
         const double f0 = face[0].value(p), f1 = face[1].value(p);
-        if (count == 2)
-            return convex(0, 1) ? std::max(f0, f1) : std::min(f0, f1);
+        if (count == 2) return convex(0, 1) ? std::max(f0, f1) : std::min(f0, f1);
         const double f[3] = {f0, f1, face[2].value(p)};
         const bool c01 = convex(0, 1), c02 = convex(0, 2), c12 = convex(1, 2);
         const int convex_pairs = c01 + c02 + c12;
-        if (convex_pairs == 3)
-            return std::max({f[0], f[1], f[2]});
-        if (convex_pairs == 0)
-            return std::min({f[0], f[1], f[2]});
+        if (convex_pairs == 3) return std::max({f[0], f[1], f[2]});
+        if (convex_pairs == 0) return std::min({f[0], f[1], f[2]});
         // The odd pair belongs together; the third face meets both in the other way.
         const bool odd = convex_pairs == 1;
         const int alone = c12 == odd ? 0 : c02 == odd ? 1 : 2;
@@ -71,8 +68,7 @@ public:
         mark();
         std::vector<int> work;
         for (int v = 0; v < static_cast<int>(sharp_.size()); ++v)
-            if (sharp_[v])
-                work.push_back(v);
+            if (sharp_[v]) work.push_back(v);
         std::vector<Vec3> moved(work.size());
         over_ranges(work.size(), 512, [&](std::size_t first, std::size_t last) {
             std::vector<int> stamp(mesh_.position.size(), -1);
@@ -86,10 +82,8 @@ public:
 private:
     Vec3 corner(const DualQuad& q, int m) const {
         Vec3 p = mesh_.position[q.vertex[m]];
-        if (q.image[m] & 1)
-            p.x -= band_.domain.width_x();
-        if (q.image[m] & 2)
-            p.y -= band_.domain.width_y();
+        if (q.image[m] & 1) p.x -= band_.domain.width_x();
+        if (q.image[m] & 2) p.y -= band_.domain.width_y();
         return p;
     }
 
@@ -167,8 +161,7 @@ private:
         bool all_clean = true;
         for (int a = first_[v]; a < first_[v + 1]; ++a)
             all_clean = all_clean && clean_[round_[a]];
-        if (all_clean)
-            return false;
+        if (all_clean) return false;
         const Vec3& n = normal_[round_[first_[v]]];
         double least = least_cosine(v);
         for (int a = first_[v]; a < first_[v + 1]; ++a)
@@ -191,15 +184,12 @@ private:
                     std::find(mesh_.quads[n].vertex.begin(), mesh_.quads[n].vertex.end(),
                               queue[at]) == mesh_.quads[n].vertex.begin()) {
                     const Vec3 p = between(here, centre_[n]) / h_;
-                    if (p.length() < reach)
-                        samples.push_back({p, normal_[n]});
+                    if (p.length() < reach) samples.push_back({p, normal_[n]});
                 }
                 for (int w : mesh_.quads[n].vertex) {
-                    if (stamp[w] == v)
-                        continue;
+                    if (stamp[w] == v) continue;
                     stamp[w] = v;
-                    if (between(here, mesh_.position[w]).length() < reach * h_)
-                        queue.push_back(w);
+                    if (between(here, mesh_.position[w]).length() < reach * h_) queue.push_back(w);
                 }
             }
         return samples;
@@ -211,15 +201,13 @@ private:
             Vec3 point(0, 0, 0), normal(0, 0, 0);
             double weight = 0;
             for (const Sample& s : samples) {
-                if (s.face != f)
-                    continue;
+                if (s.face != f) continue;
                 point += s.point * s.weight;
                 normal += s.normal * s.weight;
                 weight += s.weight;
             }
             face.weight = weight;
-            if (!(weight > 0))
-                continue;
+            if (!(weight > 0)) continue;
             face.point = point / weight;
             face.normal = normal.normalized();
         }
@@ -227,8 +215,7 @@ private:
 
     /// Splits the samples into two or three faces; false where the surface is smooth or round.
     static bool find_faces(std::vector<Sample>& samples, LocalSolid& solid) {
-        if (samples.size() < 3)
-            return false;
+        if (samples.size() < 3) return false;
         int seed[3] = {0, 0, -1};
         double least = 1;
         for (std::size_t a = 0; a < samples.size(); ++a)
@@ -240,8 +227,7 @@ private:
                     seed[1] = static_cast<int>(b);
                 }
             }
-        if (least > edge_cosine)
-            return false;
+        if (least > edge_cosine) return false;
         double best = third_cosine;
         for (std::size_t c = 0; c < samples.size(); ++c) {
             const double cosine = std::max(samples[c].normal.dot(samples[seed[0]].normal),
@@ -262,11 +248,9 @@ private:
         for (Sample& s : samples) {
             double away = undisturbed;
             for (int f = 0; f < solid.count; ++f)
-                if (f != s.face)
-                    away = std::min(away, std::fabs(solid.face[f].value(s.point)));
+                if (f != s.face) away = std::min(away, std::fabs(solid.face[f].value(s.point)));
             s.weight = std::pow(away / undisturbed, 8);
-            if (solid.count > 2)
-                continue;
+            if (solid.count > 2) continue;
             const double aside = s.point.dot(along) / lateral;
             s.weight *= std::exp(-0.5 * aside * aside);
         }
@@ -301,16 +285,13 @@ private:
                 angle = std::min(
                     angle,
                     std::acos(std::clamp(solid.face[a].normal.dot(solid.face[b].normal), -1., 1.)));
-        if (angle < std::acos(edge_cosine))
-            return false;
+        if (angle < std::acos(edge_cosine)) return false;
         for (const Sample& s : samples) {
             const double cosine = s.normal.dot(solid.face[s.face].normal);
-            if (s.weight > 0.1 && cosine < std::cos(largest_spread * angle))
-                return false;
+            if (s.weight > 0.1 && cosine < std::cos(largest_spread * angle)) return false;
         }
         for (int f = 0; f < solid.count; ++f)
-            if (!(solid.face[f].weight > 1e-9))
-                return false;
+            if (!(solid.face[f].weight > 1e-9)) return false;
         return true;
     }
 
@@ -326,8 +307,7 @@ private:
             int best_face = -1;
             for (int f = 0; f < solid.count; ++f) {
                 const double va = solid.face[f].value(a), vb = solid.face[f].value(b);
-                if (std::fabs(va - vb) < 1e-9)
-                    continue;
+                if (std::fabs(va - vb) < 1e-9) continue;
                 const double t = va / (va - vb);
                 if (t < -1.5 || t > 2.5 ||
                     (!cell.on_side[0] && !cell.on_side[1] && (t < -0.1 || t > 1.1)))
@@ -340,8 +320,7 @@ private:
                     best_face = f;
                 }
             }
-            if (best_face >= 0)
-                touched[best_face] = true;
+            if (best_face >= 0) touched[best_face] = true;
             sum += best;
         }
         return sum / cell.count;
@@ -354,17 +333,14 @@ private:
         std::array<Vec3, 3> basis; // orthonormal, by Gram and Schmidt
         int size = 0;
         for (int f = 0; f < solid.count; ++f) {
-            if (!touched[f])
-                continue;
+            if (!touched[f]) continue;
             Vec3 n = solid.face[f].normal;
             for (int axis = 0; axis < 2; ++axis)
-                if (on_side[axis])
-                    n[axis] = 0;
+                if (on_side[axis]) n[axis] = 0;
             for (int b = 0; b < size; ++b)
                 n -= basis[b] * basis[b].dot(n);
             const double length = n.length();
-            if (length < 0.15)
-                continue; // nearly parallel: adds no information
+            if (length < 0.15) continue; // nearly parallel: adds no information
             n /= length;
             // Moving along n leaves the earlier faces; step until face f is met.
             p -= n * (solid.face[f].value(p) / n.dot(solid.face[f].normal));
@@ -377,23 +353,19 @@ private:
         const Vec3 here = mesh_.position[v];
         std::vector<Sample> samples = samples_near(v, stamp);
         LocalSolid solid;
-        if (!find_faces(samples, solid))
-            return here;
+        if (!find_faces(samples, solid)) return here;
         const CrossedCell cell = crossed_cell(band_, mesh_, v);
         bool touched[3] = {};
         const Vec3 start = recross(cell, here, h_, solid, touched);
         const Vec3 p = meet(start, solid, touched, cell.on_side) * h_ + here;
         for (int axis = 0; axis < 3; ++axis) {
-            if (cell.on_side[axis])
-                continue;
+            if (cell.on_side[axis]) continue;
             const double slack = (cell.on_side[0] || cell.on_side[1] ? 2.0 : 0.3) * h_;
-            if (p[axis] < cell.low[axis] - slack || p[axis] > cell.high[axis] + slack)
-                return here;
+            if (p[axis] < cell.low[axis] - slack || p[axis] > cell.high[axis] + slack) return here;
         }
         Vec3 q = p;
         for (int axis = 0; axis < 2; ++axis)
-            if (cell.on_side[axis])
-                q[axis] = here[axis];
+            if (cell.on_side[axis]) q[axis] = here[axis];
         return q;
     }
 
@@ -409,8 +381,7 @@ private:
 } // namespace
 
 void sharpen(const Band& band, DualMesh& mesh) {
-    if (!mesh.quads.empty())
-        Sharpener(band, mesh).run();
+    if (!mesh.quads.empty()) Sharpener(band, mesh).run();
 }
 
 } // namespace rille::geometry

@@ -39,12 +39,9 @@ private:
     /// Whether grid edges along `axis` leave this node (not across a mirror side).
     bool has_edge(int node, int axis) const {
         const auto& c = band_.cells[node];
-        if (band_.neighbour[node][2 * axis + 1] < 0)
-            return false;
-        if (axis == 0)
-            return !mirror_ || c.i + 1 < band_.domain.cells_x;
-        if (axis == 1)
-            return !mirror_ || c.j + 1 < band_.domain.cells_y;
+        if (band_.neighbour[node][2 * axis + 1] < 0) return false;
+        if (axis == 0) return !mirror_ || c.i + 1 < band_.domain.cells_x;
+        if (axis == 1) return !mirror_ || c.j + 1 < band_.domain.cells_y;
         return true;
     }
 
@@ -74,10 +71,8 @@ private:
                 edge_mask_[node] |= 1 << axis;
         const auto& c = band_.cells[node];
         for (int variant = 0; variant < 4; ++variant) {
-            if ((variant & 1) && !(mirror_ && c.i == 0))
-                continue;
-            if ((variant & 2) && !(mirror_ && c.j == 0))
-                continue;
+            if ((variant & 1) && !(mirror_ && c.i == 0)) continue;
+            if ((variant & 2) && !(mirror_ && c.j == 0)) continue;
             const auto corner = corners(node, variant);
             bool full = true, crossed = false;
             for (int m : corner) {
@@ -86,8 +81,7 @@ private:
                 else
                     crossed = crossed || gas(m) != gas(node);
             }
-            if (full && crossed)
-                cell_mask_[node] |= 1 << variant;
+            if (full && crossed) cell_mask_[node] |= 1 << variant;
         }
     }
 
@@ -148,10 +142,8 @@ private:
                         hit[hits++] = m;
                 for (int m = 0; m < hits; ++m)
                     crossed[edge[hit[m]]] = true;
-                if (hits == 2)
-                    unite(edge[hit[0]], edge[hit[1]]);
-                if (hits < 4)
-                    continue;
+                if (hits == 2) unite(edge[hit[0]], edge[hit[1]]);
+                if (hits < 4) continue;
                 double sum = 0;
                 for (int m : ring)
                     sum += band_.phi[cell.corner[m]];
@@ -165,11 +157,9 @@ private:
         cell.sheets = 0;
         for (int e = 0; e < 12; ++e) {
             cell.loop[e] = -1;
-            if (!crossed[e])
-                continue;
+            if (!crossed[e]) continue;
             int& sheet = number[root(e)];
-            if (sheet < 0)
-                sheet = cell.sheets++;
+            if (sheet < 0) sheet = cell.sheets++;
             cell.loop[e] = static_cast<std::int8_t>(sheet);
         }
     }
@@ -194,8 +184,7 @@ private:
             int node = quad.node, variant = 0;
             std::uint8_t image = 0;
             for (int axis = 0; axis < 3; ++axis) {
-                if (!(back[m] >> axis & 1))
-                    continue;
+                if (!(back[m] >> axis & 1)) continue;
                 const int at = axis == 0   ? band_.cells[quad.node].i
                                : axis == 1 ? band_.cells[quad.node].j
                                            : 1;
@@ -203,8 +192,7 @@ private:
                     variant |= 1 << axis;
                 else
                     node = band_.neighbour[node][2 * axis];
-                if (at == 0 && !mirror_)
-                    image |= 1 << axis;
+                if (at == 0 && !mirror_) image |= 1 << axis;
                 RILLE_CHECK(node >= 0, "the band is too narrow at the front");
             }
             RILLE_CHECK(cell_mask_[node] >> variant & 1, "the band is too narrow at the front");

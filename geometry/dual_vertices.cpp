@@ -10,8 +10,7 @@ namespace rille::geometry {
 namespace {
 
 double minmod(double a, double b) {
-    if (a * b <= 0)
-        return 0;
+    if (a * b <= 0) return 0;
     return std::fabs(a) < std::fabs(b) ? a : b;
 }
 
@@ -20,8 +19,7 @@ double minmod(double a, double b) {
 double change_to_side(const Band& band, int node, int axis, bool low) {
     const int inwards = 2 * axis + (low ? 1 : 0);
     const int one = band.neighbour[node][inwards];
-    if (one < 0 || one == node)
-        return 0;
+    if (one < 0 || one == node) return 0;
     const double slope = band.phi[one] - band.phi[node];
     const int two = band.neighbour[one][inwards];
     const double bend = two < 0 || two == one
@@ -85,8 +83,7 @@ CrossedCell crossings(const Band& band, const DualMesh& mesh, int vertex, bool m
     Vec3 box_low = out.low, box_high = out.high;
     for (int axis = 0; axis < 2; ++axis) {
         out.on_side[axis] = v.half[axis] || (v.across[axis] && to_side);
-        if (out.on_side[axis])
-            box_low[axis] = box_high[axis] = side[axis];
+        if (out.on_side[axis]) box_low[axis] = box_high[axis] = side[axis];
         if (v.half[axis]) {
             (cell.low[axis] ? out.high : out.low)[axis] = out.low[axis];
             (cell.low[axis] ? out.low : out.high)[axis] = side[axis];
@@ -99,20 +96,17 @@ CrossedCell crossings(const Band& band, const DualMesh& mesh, int vertex, bool m
             bool skip = axis < 2 && out.on_side[axis];
             for (int m = 0; m < 2; ++m)
                 skip = skip || (out.on_side[m] && (from >> m & 1));
-            if (skip)
-                continue;
+            if (skip) continue;
             const double real_from = band.phi[cell.corner[from]],
                          real_to = band.phi[cell.corner[to]];
             const double value_from = out.on_side[0] || out.on_side[1] ? v.value[from] : real_from;
             const double value_to = out.on_side[0] || out.on_side[1] ? v.value[to] : real_to;
             double t = 0;
             if (to_side) {
-                if ((value_from >= 0) == (value_to >= 0))
-                    continue;
+                if ((value_from >= 0) == (value_to >= 0)) continue;
                 t = value_from / (value_from - value_to);
             } else {
-                if (cell.loop[edge_number(axis, from)] != sheet)
-                    continue;
+                if (cell.loop[edge_number(axis, from)] != sheet) continue;
                 const double real = real_from - real_to, moved = value_from - value_to;
                 // A steep surface may leave the edge on its way to the side: follow it.
                 t = moved * real > 0 && std::fabs(moved) > 0.2 * std::fabs(real)

@@ -24,8 +24,7 @@ public:
                 low_[a] = std::min(low_[a], p[a]);
                 high[a] = std::max(high[a], p[a]);
             }
-        if (points.empty())
-            low_ = high = Vec3(0, 0, 0);
+        if (points.empty()) low_ = high = Vec3(0, 0, 0);
         for (;; size *= 1.5) {
             double total = 1;
             for (int a = 0; a < 3; ++a) {
@@ -35,8 +34,7 @@ public:
                 size_[a] = period_[a] > 0 ? extent / count_[a] : size;
                 total *= count_[a];
             }
-            if (total < 8e6)
-                break;
+            if (total < 8e6) break;
         }
         start_.assign(static_cast<std::size_t>(count_[0]) * count_[1] * count_[2] + 1, 0);
         std::vector<int> bin(points.size());
@@ -57,8 +55,7 @@ public:
     Vec3 between(const Vec3& a, const Vec3& b) const {
         Vec3 d = b - a;
         for (int axis = 0; axis < 2; ++axis)
-            if (period_[axis] > 0)
-                d[axis] -= period_[axis] * std::round(d[axis] / period_[axis]);
+            if (period_[axis] > 0) d[axis] -= period_[axis] * std::round(d[axis] / period_[axis]);
         return d;
     }
 
@@ -82,8 +79,7 @@ public:
                     const int b = index(wrap(x, 0), wrap(y, 1), z);
                     for (int m = start_[b]; m < start_[b + 1]; ++m) {
                         const Vec3 d = between(p, points_[order_[m]]);
-                        if (d.length2() <= radius * radius)
-                            visit(order_[m], d);
+                        if (d.length2() <= radius * radius) visit(order_[m], d);
                     }
                 }
     }
@@ -91,8 +87,7 @@ public:
     /// Nearest point, the lower index of two; -1 if there is none.
     int nearest(const Vec3& p) const {
         int best = -1;
-        if (points_.empty())
-            return best;
+        if (points_.empty()) return best;
         double best2 = std::numeric_limits<double>::max();
         for (double radius = std::max({size_[0], size_[1], size_[2]}); best < 0; radius *= 2)
             near(p, radius, [&](int n, const Vec3& d) {

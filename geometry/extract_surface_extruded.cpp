@@ -43,14 +43,12 @@ std::vector<Piece> cut_at_sides(const ContourChain& chain, const Domain& domain)
             const double side = x_min + width * (right ? here + 1 : here);
             const double z = a.z + (side - a.x) / (b.x - a.x) * (b.z - a.z);
             const Vec3 end(right ? x_max : x_min, 0, z);
-            if ((end - from).length() > 0)
-                pieces.push_back({from, end, here, false});
+            if ((end - from).length() > 0) pieces.push_back({from, end, here, false});
             from = Vec3(right ? x_min : x_max, 0, z);
             here += right ? 1 : -1;
         }
         const Vec3 end = inside(ahead, period_of(ahead.x));
-        if ((end - from).length() > 0)
-            pieces.push_back({from, end, here, false});
+        if ((end - from).length() > 0) pieces.push_back({from, end, here, false});
     }
     for (std::size_t n = 0; n < pieces.size(); ++n)
         pieces[n].enters = n > 0 ? pieces[n].period == pieces[n - 1].period + 1
@@ -62,18 +60,15 @@ std::vector<Piece> cut_at_sides(const ContourChain& chain, const Domain& domain)
 void start_at_side(std::vector<Piece>& pieces) {
     int start = -1;
     for (int n = 0; n < static_cast<int>(pieces.size()); ++n)
-        if (pieces[n].enters && (start < 0 || pieces[n].a.z > pieces[start].a.z))
-            start = n;
-    if (start > 0)
-        std::rotate(pieces.begin(), pieces.begin() + start, pieces.end());
+        if (pieces[n].enters && (start < 0 || pieces[n].a.z > pieces[start].a.z)) start = n;
+    if (start > 0) std::rotate(pieces.begin(), pieces.begin() + start, pieces.end());
 }
 
 void add_open(Surface& s, const ContourChain& chain, int number) {
     const int size = static_cast<int>(chain.points.size()) - 1;
     for (int n = 0; n <= size; ++n) {
         s.vertices.push_back(chain.points[n].p);
-        if (n == 0)
-            continue;
+        if (n == 0) continue;
         const int end = static_cast<int>(s.vertices.size()) - 1;
         const int e = static_cast<int>(s.size());
         add_element(s, {end - 1, end, -1, -1}, number);
@@ -108,13 +103,11 @@ int open_chain(const std::vector<ContourChain>& chains, const Domain& domain) {
     for (int n = 0; n < static_cast<int>(chains.size()); ++n) {
         const auto& c = chains[n];
         const double run = c.closed ? c.shift : c.points.back().p.x - c.points.front().p.x;
-        if (run < 0.5 * domain.width_x())
-            continue;
+        if (run < 0.5 * domain.width_x()) continue;
         double z = c.points.front().p.z;
         if (c.closed)
             for (const Piece& piece : cut_at_sides(c, domain))
-                if (piece.enters)
-                    z = std::max(z, piece.a.z);
+                if (piece.enters) z = std::max(z, piece.a.z);
         if (best < 0 || z > best_z) {
             best = n;
             best_z = z;
@@ -133,8 +126,7 @@ Surface extract_extruded(const Band& band) {
         merge_slivers(chain, shortest_segment * domain.spacing);
     }
     const int open = open_chain(chains, domain);
-    if (open > 0)
-        std::rotate(chains.begin(), chains.begin() + open, chains.begin() + open + 1);
+    if (open > 0) std::rotate(chains.begin(), chains.begin() + open, chains.begin() + open + 1);
     Surface s;
     int number = open < 0 ? 1 : 0;
     for (const ContourChain& chain : chains) {

@@ -31,8 +31,7 @@ std::vector<int> parts_of_vertices(const DualMesh& mesh) {
     int count = 0;
     for (int v = 0; v < static_cast<int>(parent.size()); ++v) {
         const int r = root(v);
-        if (number[r] < 0)
-            number[r] = count++;
+        if (number[r] < 0) number[r] = count++;
         number[v] = number[r];
     }
     return number;
@@ -50,13 +49,10 @@ void add_vertices(const Band& band, const DualMesh& mesh, Surface& s) {
     for (std::size_t v = 0; v < used.size(); ++v) {
         start[v] = static_cast<int>(s.vertices.size());
         for (int image = 0; image < 4; ++image) {
-            if (!(used[v] >> image & 1))
-                continue;
+            if (!(used[v] >> image & 1)) continue;
             Vec3 p = mesh.position[v];
-            if (image & 1)
-                p.x = p.x == x_max ? x_min : p.x - band.domain.width_x();
-            if (image & 2)
-                p.y = p.y == y_max ? y_min : p.y - band.domain.width_y();
+            if (image & 1) p.x = p.x == x_max ? x_min : p.x - band.domain.width_x();
+            if (image & 2) p.y = p.y == y_max ? y_min : p.y - band.domain.width_y();
             s.vertices.push_back(p);
         }
     }

@@ -32,7 +32,6 @@ struct GrownFilms {
 /// their integral to round-off (a concave corner merges, a convex one spreads); where nothing
 /// moved and the elements are the same, values are returned bit for bit.
 void carry_fields(const Surface& from, const Surface& to, const std::vector<double>& moved,
-                  double width_x, double width_y, bool periodic,
-                  std::vector<SurfaceField*> fields);
+                  double width_x, double width_y, bool periodic, std::vector<SurfaceField*> fields);
 
 } // namespace rille::geometry

@@ -44,8 +44,7 @@ public:
             length2 > 0 ? std::clamp((u * wall_u_ + z * wall_z_) / length2, 0.0, 1.0) : 0;
         d2 = std::min(d2, squared(u - t * wall_u_, z - t * wall_z_));
         double d = std::sqrt(d2);
-        if (at_corner)
-            d = std::min(d, std::fabs(from_centre - radius_));
+        if (at_corner) d = std::min(d, std::fabs(from_centre - radius_));
         const bool in_slab =
             z <= top_ && u * sine_ >= z * cosine_ && !(at_corner && from_centre > radius_);
         return z <= 0 || in_slab ? -d : d;
@@ -63,8 +62,7 @@ private:
 
 std::function<double(const Vec3&)> initial_distance(const Domain& domain, const MaskShape& mask,
                                                     double offset) {
-    if (mask.thickness <= 0)
-        return [offset](const Vec3& p) { return p.z - offset; };
+    if (mask.thickness <= 0) return [offset](const Vec3& p) { return p.z - offset; };
     const MaskProfile profile(mask);
     const OpeningOutlines outlines(domain, mask.openings);
     return [profile, outlines, offset](const Vec3& p) {

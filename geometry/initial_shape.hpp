@@ -17,17 +17,17 @@ struct Opening {
     enum class Shape { trench, round, elliptic };
     std::string name;
     Shape shape = Shape::trench;
-    double width_x = 0; ///< full width along x at z = 0 [nm]
-    double width_y = 0; ///< full width along y at z = 0 [nm]; unused for a trench (runs along y)
+    double width_x = 0;  ///< full width along x at z = 0 [nm]
+    double width_y = 0;  ///< full width along y at z = 0 [nm]; unused for a trench (runs along y)
     double centre_x = 0; ///< [nm], anywhere in the period
     double centre_y = 0; ///< [nm]
 };
 
 /// The mask as drawn: a slab 0 <= z <= thickness with openings.
 struct MaskShape {
-    double thickness = 0;               ///< [nm]; 0 = no mask
-    double sidewall_angle_deg = 90;     ///< (0, 180); 90 vertical, below 90 opens upwards
-    double corner_radius = 0;           ///< [nm] rounding of the top edge
+    double thickness = 0;           ///< [nm]; 0 = no mask
+    double sidewall_angle_deg = 90; ///< (0, 180); 90 vertical, below 90 opens upwards
+    double corner_radius = 0;       ///< [nm] rounding of the top edge
     std::vector<Opening> openings;
 };
 

@@ -39,8 +39,7 @@ public:
 
 private:
     void collect(Moments& m, const Vec3 (&points)[3], const double (&weights)[3], double nz) const {
-        if (!m.started)
-            m.reference = points[0];
+        if (!m.started) m.reference = points[0];
         m.started = true;
         m.cover += nz;
         // One offset for the whole piece: it may lie across a periodic side from the reference.
@@ -55,11 +54,9 @@ private:
         }
     }
     Vec3 nearest_image(Vec3 d) const {
-        if (domain_.sides == Sides::mirror)
-            return d;
+        if (domain_.sides == Sides::mirror) return d;
         d.x -= domain_.width_x() * std::round(d.x / domain_.width_x());
-        if (!domain_.extruded())
-            d.y -= domain_.width_y() * std::round(d.y / domain_.width_y());
+        if (!domain_.extruded()) d.y -= domain_.width_y() * std::round(d.y / domain_.width_y());
         return d;
     }
 
@@ -95,22 +92,19 @@ std::vector<IsolatedPart> find_isolated_parts(const Domain& domain, const Surfac
             continue;
         }
         adder.add(m, vertex(0), vertex(1), vertex(2));
-        if (c[3] != c[2])
-            adder.add(m, vertex(0), vertex(2), vertex(3));
+        if (c[3] != c[2]) adder.add(m, vertex(0), vertex(2), vertex(3));
     }
 
     const double base = domain.width_x() * (domain.extruded() ? 1 : domain.width_y());
     std::vector<int> sheets; // that span the period, from the top
     for (int c = 0; c < chains; ++c)
-        if (std::fabs(moments[c].cover) > 0.5 * base)
-            sheets.push_back(c);
+        if (std::fabs(moments[c].cover) > 0.5 * base) sheets.push_back(c);
     std::stable_sort(sheets.begin(), sheets.end(),
                      [&](int a, int b) { return moments[a].top > moments[b].top; });
 
     std::vector<IsolatedPart> parts;
     for (int c = 1; c < chains; ++c) {
-        if (!moments[c].started)
-            continue;
+        if (!moments[c].started) continue;
         const auto at = std::find(sheets.begin(), sheets.end(), c);
         if (at == sheets.end()) {
             parts.push_back(part_of(moments[c], c));

@@ -29,8 +29,7 @@ Measured width_of(const Section::Gap& gap) {
 
 std::optional<Measured> width_at(const Section& section, double z) {
     const auto gap = section.gap_at(z);
-    if (!gap)
-        return {};
+    if (!gap) return {};
     return width_of(*gap);
 }
 
@@ -39,8 +38,7 @@ std::vector<double> heights_between(const Section& section, double low, double h
     std::vector<double> z{low, high};
     for (const auto& p : section.pieces())
         for (const double end : {p.z0, p.z1})
-            if (end > low && end < high)
-                z.push_back(end);
+            if (end > low && end < high) z.push_back(end);
     std::sort(z.begin(), z.end());
     z.erase(std::unique(z.begin(), z.end()), z.end());
     return z;
@@ -64,8 +62,7 @@ std::optional<Measured> cd_at(const Domain& domain, const Surface& surface, cons
 
 std::optional<Measured> cd_y_at(const Domain& domain, const Surface& surface,
                                 const FeatureSite& site, double z) {
-    if (domain.extruded())
-        return {};
+    if (domain.extruded()) return {};
     return width_at({domain, surface, 1, site.centre_x, site.centre_y, site.width_y}, z);
 }
 
@@ -77,14 +74,11 @@ std::optional<Bow> widest_cd(const Domain& domain, const Surface& surface, const
     std::vector<double> heights = heights_between(section, z_low, z_high);
     for (auto z = heights.rbegin(); z != heights.rend(); ++z) {
         std::optional<Section::Gap> above, below;
-        if (*z < z_high)
-            above = section.gap_at(*z, Section::Side::from_above);
-        if (*z > z_low)
-            below = section.gap_at(*z, Section::Side::from_below);
+        if (*z < z_high) above = section.gap_at(*z, Section::Side::from_above);
+        if (*z > z_low) below = section.gap_at(*z, Section::Side::from_below);
         const double tie = 1e-9 * domain.spacing;
         const double width = std::max(above ? above->width() : 0, below ? below->width() : 0);
-        if (width <= (widest ? widest->cd.value + tie : 0))
-            continue;
+        if (width <= (widest ? widest->cd.value + tie : 0)) continue;
         if (above && below && std::fabs(above->width() - below->width()) < tie)
             widest = Bow{mean_of(width_of(*above), width_of(*below)), *z};
         else
@@ -134,8 +128,7 @@ struct WallFit {
 std::optional<SidewallAngles> sidewall_angles(const Domain& domain, const Surface& surface,
                                               const FeatureSite& site, double z_low,
                                               double z_high) {
-    if (!(z_high > z_low))
-        return {};
+    if (!(z_high > z_low)) return {};
     const Section section = along_x(domain, surface, site);
     const std::vector<double> heights = heights_between(section, z_low, z_high);
     WallFit left, right;
@@ -146,8 +139,7 @@ std::optional<SidewallAngles> sidewall_angles(const Domain& domain, const Surfac
         for (const double at : {-1 / std::sqrt(3.0), 1 / std::sqrt(3.0)}) {
             const double z = middle + at * half;
             const auto gap = section.gap_at(z);
-            if (!gap)
-                return {};
+            if (!gap) return {};
             left.points.push_back({z, gap->left.u, half, gap->left.piece});
             right.points.push_back({z, gap->right.u, half, gap->right.piece});
         }
@@ -172,8 +164,7 @@ public:
         offer(high, -1, best);
         for (const auto& p : section_.pieces())
             for (const double sense : {-1.0, 1.0})
-                if (p.z0 <= z_from_ && p.u0 > low && p.u0 < high)
-                    offer(p.u0, sense, best);
+                if (p.z0 <= z_from_ && p.u0 > low && p.u0 < high) offer(p.u0, sense, best);
         return best;
     }
 
@@ -181,13 +172,11 @@ private:
     /// The floor at u, approached from beside it (a step has two heights there).
     void offer(double u, double sense, std::optional<Section::Crossing>& best) const {
         auto found = section_.floor_below(u + sense * 1e-9 * (right_ - left_), z_from_);
-        if (!found)
-            return;
+        if (!found) return;
         const Section::Piece& p = *found->piece;
         found->u = u;
         found->z = p.z0 + (u - p.u0) / (p.u1 - p.u0) * (p.z1 - p.z0);
-        if (!best || found->z < best->z)
-            best = found;
+        if (!best || found->z < best->z) best = found;
     }
 
     const Section& section_;
@@ -206,12 +195,10 @@ std::optional<Floor> floor_of(const Domain& domain, const Surface& surface,
     const Section section = along_x(domain, surface, site);
     const double sky = 1e300;
     const auto centre = section.floor_below(section.centre(), sky);
-    if (!centre || centre->piece->chain != 0)
-        return {};
+    if (!centre || centre->piece->chain != 0) return {};
     for (auto below = centre; below;) { // a void under the axis: the feature has closed
         below = section.floor_below(section.centre(), std::nextafter(below->z, -sky));
-        if (below && below->piece->chain != 0)
-            return {};
+        if (below && below->piece->chain != 0) return {};
     }
     Floor floor{height_of(*centre), height_of(*centre), height_of(*centre), height_of(*centre)};
     const double rise = std::max(0.1 * std::max(0.0, -centre->z), 0.5 * domain.spacing);
@@ -224,13 +211,10 @@ std::optional<Floor> floor_of(const Domain& domain, const Surface& surface,
         right = bottom->right.u;
         z_from = centre->z + rise;
     }
-    if (right <= left)
-        return floor;
+    if (right <= left) return floor;
     const FloorReader reader(section, z_from, left, right);
-    if (const auto edge = reader.lowest(0, 0.1))
-        floor.left_edge = height_of(*edge);
-    if (const auto edge = reader.lowest(0.9, 1))
-        floor.right_edge = height_of(*edge);
+    if (const auto edge = reader.lowest(0, 0.1)) floor.left_edge = height_of(*edge);
+    if (const auto edge = reader.lowest(0.9, 1)) floor.right_edge = height_of(*edge);
     if (const auto deepest = reader.lowest(0, 1); deepest && deepest->z < centre->z)
         floor.deepest = height_of(*deepest);
     return floor;
@@ -241,10 +225,8 @@ std::optional<Measured> top_between(const Domain& domain, const Surface& surface
     const Section section(domain, surface, 0, y, 0.5 * (x_low + x_high), x_high - x_low);
     std::optional<Section::Crossing> best;
     const auto offer = [&](double u, double z, const Section::Piece& p) {
-        if (u < x_low || u > x_high || p.u1 <= p.u0)
-            return;
-        if (!best || z > best->z)
-            best = Section::Crossing{u, z, &p};
+        if (u < x_low || u > x_high || p.u1 <= p.u0) return;
+        if (!best || z > best->z) best = Section::Crossing{u, z, &p};
     };
     for (const auto& p : section.pieces()) {
         offer(p.u0, p.z0, p);
@@ -253,8 +235,7 @@ std::optional<Measured> top_between(const Domain& domain, const Surface& surface
             if ((p.u0 > u) != (p.u1 > u))
                 offer(u, p.z0 + (u - p.u0) / (p.u1 - p.u0) * (p.z1 - p.z0), p);
     }
-    if (!best)
-        return {};
+    if (!best) return {};
     return height_of(*best);
 }
 
@@ -300,35 +281,26 @@ std::optional<Measured> mask_facet_angle(const Domain& domain, const Surface& su
     const Section section = along_x(domain, surface, site);
     const double foot = z_mask_bottom + 1e-3 * domain.spacing;
     const auto gap = section.gap_at(foot);
-    if (!gap)
-        return {};
+    if (!gap) return {};
     // The mask beside the opening reaches to where the next opening begins.
     double far_left = -1e300, far_right = 1e300;
     for (const auto& c : section.level(foot)) {
-        if (c.u < gap->left.u)
-            far_left = std::max(far_left, c.u);
-        if (c.u > gap->right.u)
-            far_right = std::min(far_right, c.u);
+        if (c.u < gap->left.u) far_left = std::max(far_left, c.u);
+        if (c.u > gap->right.u) far_right = std::min(far_right, c.u);
     }
     Facet left, right;
     for (const auto& p : section.pieces()) {
         const double angle = degrees * std::acos(std::clamp(p.normal_z, -1.0, 1.0));
         const double u = 0.5 * (p.u0 + p.u1);
-        if (0.5 * (p.z0 + p.z1) <= foot || angle < 20 || angle > 80)
-            continue;
-        if (p.normal_u > 0 && u > far_left && u < section.centre())
-            left.add(p, angle);
-        if (p.normal_u < 0 && u < far_right && u > section.centre())
-            right.add(p, angle);
+        if (0.5 * (p.z0 + p.z1) <= foot || angle < 20 || angle > 80) continue;
+        if (p.normal_u > 0 && u > far_left && u < section.centre()) left.add(p, angle);
+        if (p.normal_u < 0 && u < far_right && u > section.centre()) right.add(p, angle);
     }
     const double length = left.length + right.length;
-    if (length <= 0)
-        return {};
+    if (length <= 0) return {};
     Measured m{(left.angle_times_length + right.angle_times_length) / length, {}};
-    if (left.length > 0)
-        left.add_weights(left.length / length, true, m);
-    if (right.length > 0)
-        right.add_weights(right.length / length, false, m);
+    if (left.length > 0) left.add_weights(left.length / length, true, m);
+    if (right.length > 0) right.add_weights(right.length / length, false, m);
     return m;
 }
 

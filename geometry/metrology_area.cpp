@@ -30,23 +30,18 @@ std::vector<Piece> level_cut(const Surface& s, double z, double shortest) {
             int found = 0;
             for (int k = 0; k < 3 && found < 2; ++k) {
                 int v = half[k], w = half[(k + 1) % 3];
-                if ((s.vertices[v].z > z) == (s.vertices[w].z > z))
-                    continue;
-                if (v > w)
-                    std::swap(v, w); // the same bits from either face of the edge
+                if ((s.vertices[v].z > z) == (s.vertices[w].z > z)) continue;
+                if (v > w) std::swap(v, w); // the same bits from either face of the edge
                 const Vec3 &a = s.vertices[v], &b = s.vertices[w];
                 ends[found++] = a + (z - a.z) / (b.z - a.z) * (b - a);
             }
             const Vec3 face = (s.vertices[half[1]] - s.vertices[half[0]])
                                   .cross(s.vertices[half[2]] - s.vertices[half[0]]);
-            if (found < 2 || face.length() == 0)
-                continue;
+            if (found < 2 || face.length() == 0) continue;
             const Vec3 n = face.normalized();
             const Vec3 along = ends[1] - ends[0];
-            if (-along.y * n.x + along.x * n.y < 0)
-                std::swap(ends[0], ends[1]);
-            if (along.length() < shortest)
-                continue; // a corner that lies in the plane
+            if (-along.y * n.x + along.x * n.y < 0) std::swap(ends[0], ends[1]);
+            if (along.length() < shortest) continue; // a corner that lies in the plane
             out.push_back({{ends[0].x, ends[0].y},
                            {ends[1].x, ends[1].y},
                            std::hypot(n.x, n.y),
@@ -78,8 +73,7 @@ std::vector<Piece> with_images(const Domain& domain, const std::vector<Piece>& c
             for (int a = 0; a < 2; ++a)
                 for (auto* end : {&p.from, &p.to})
                     (*end)[a] = sign[a] * (*end)[a] + image[a] * width[a];
-            if (turned)
-                std::swap(p.from, p.to);
+            if (turned) std::swap(p.from, p.to);
             out.push_back(p);
         }
     }
@@ -97,8 +91,7 @@ public:
     int find(const std::array<double, 2>& at) const {
         for (int c = 0; c < 9; ++c) {
             const auto cell = cells_.find(key(at[0], at[1], c % 3 - 1, c / 3 - 1));
-            if (cell == cells_.end())
-                continue;
+            if (cell == cells_.end()) continue;
             for (const int i : cell->second)
                 if (std::hypot(pieces_[i].from[0] - at[0], pieces_[i].from[1] - at[1]) < tolerance_)
                     return i;
@@ -138,8 +131,7 @@ std::vector<Loop> closed_loops(const std::vector<Piece>& pieces, double toleranc
             loop.pieces.push_back(at);
             at = starts.find(p.to);
         }
-        if (at == static_cast<int>(first) && loop.pieces.size() > 2)
-            loops.push_back(loop);
+        if (at == static_cast<int>(first) && loop.pieces.size() > 2) loops.push_back(loop);
     }
     return loops;
 }
@@ -148,12 +140,10 @@ bool inside(const std::vector<Piece>& pieces, const Loop& loop, double x, double
     bool in = false;
     for (const int i : loop.pieces) {
         const Piece& p = pieces[i];
-        if ((p.from[1] > y) == (p.to[1] > y))
-            continue;
+        if ((p.from[1] > y) == (p.to[1] > y)) continue;
         const double at =
             p.from[0] + (y - p.from[1]) / (p.to[1] - p.from[1]) * (p.to[0] - p.from[0]);
-        if (at > x)
-            in = !in;
+        if (at > x) in = !in;
     }
     return in;
 }
@@ -162,8 +152,7 @@ bool inside(const std::vector<Piece>& pieces, const Loop& loop, double x, double
 
 std::optional<Measured> cd_area_at(const Domain& domain, const Surface& surface,
                                    const FeatureSite& site, double z) {
-    if (domain.extruded())
-        return {};
+    if (domain.extruded()) return {};
     const std::vector<Piece> pieces =
         with_images(domain, level_cut(surface, z, 1e-9 * domain.spacing), site);
     const std::vector<Loop> loops = closed_loops(pieces, 1e-7 * domain.spacing);
@@ -172,8 +161,7 @@ std::optional<Measured> cd_area_at(const Domain& domain, const Surface& surface,
         if (loop.area > 0 && inside(pieces, loop, site.centre_x, site.centre_y) &&
             (!opening || loop.area < opening->area))
             opening = &loop;
-    if (!opening)
-        return {};
+    if (!opening) return {};
     double area = opening->area;
     std::vector<const Loop*> rims{opening};
     for (const Loop& loop : loops) { // pillars left standing in the opening
@@ -183,8 +171,7 @@ std::optional<Measured> cd_area_at(const Domain& domain, const Surface& surface,
             rims.push_back(&loop);
         }
     }
-    if (area <= 0)
-        return {};
+    if (area <= 0) return {};
     Measured m{2 * std::sqrt(area / pi), {}};
     // An element that moves out by d takes length * d / |n in the plane| from the area.
     for (const Loop* rim : rims)

@@ -35,7 +35,8 @@ NearestElement::NearestElement(const Domain& domain, const Surface& surface)
     }
     z_low_ = z_low;
     nx_ = std::max(1, static_cast<int>(std::ceil(domain.width_x() / size_)));
-    ny_ = domain.extruded() ? 1 : std::max(1, static_cast<int>(std::ceil(domain.width_y() / size_)));
+    ny_ =
+        domain.extruded() ? 1 : std::max(1, static_cast<int>(std::ceil(domain.width_y() / size_)));
     nz_ = surface.size() == 0 ? 1 : static_cast<int>((z_high - z_low) / size_) + 1;
     std::vector<long> cell(surface.size());
     first_.assign(static_cast<std::size_t>(nx_) * ny_ * nz_ + 1, 0);
@@ -60,17 +61,20 @@ long NearestElement::cell_of(int i, int j, int k) const {
 
 int NearestElement::operator()(const Vec3& p) const {
     const int i0 = static_cast<int>(std::floor((p.x - domain_.x_min()) / size_));
-    const int j0 = domain_.extruded() ? 0 : static_cast<int>(std::floor((p.y - domain_.y_min()) / size_));
+    const int j0 =
+        domain_.extruded() ? 0 : static_cast<int>(std::floor((p.y - domain_.y_min()) / size_));
     const int k0 = static_cast<int>(std::floor((p.z - z_low_) / size_));
     const int widest = nx_ + ny_ + nz_ + std::abs(k0);
     int best = -1;
     double best2 = std::numeric_limits<double>::infinity();
     const auto look_in = [&](int i, int j, int k) {
         if (k < 0 || k >= nz_) return;
-        const long cell = cell_of(wrapped(i, nx_, domain_.sides), wrapped(j, ny_, domain_.sides), k);
+        const long cell =
+            cell_of(wrapped(i, nx_, domain_.sides), wrapped(j, ny_, domain_.sides), k);
         for (int n = first_[cell]; n < first_[cell + 1]; ++n) {
             const Vec3& c = surface_.centre[elements_[n]];
-            const double dx = separation(p.x, c.x, domain_.x_min(), domain_.width_x(), domain_.sides);
+            const double dx =
+                separation(p.x, c.x, domain_.x_min(), domain_.width_x(), domain_.sides);
             const double dy = domain_.extruded() ? 0.0
                                                  : separation(p.y, c.y, domain_.y_min(),
                                                               domain_.width_y(), domain_.sides);

@@ -11,12 +11,12 @@ namespace rille::geometry {
 /// Finds the element whose centre lies nearest to a point, across the sides of the period. Equal
 /// distances go to the smaller index.
 class NearestElement {
-  public:
+public:
     NearestElement(const Domain&, const Surface&);
     /// -1 for an empty surface. Points within a few cells of the surface are found fast.
     int operator()(const Vec3& point) const;
 
-  private:
+private:
     long cell_of(int i, int j, int k) const;
     const Domain domain_;
     const Surface& surface_;

@@ -24,12 +24,10 @@ double ellipse_distance(double x, double y, double a, double b) {
         for (int n = 0; n < 100; ++n) {
             const double u = a * x / (t + aa), v = y > 0 ? b * y / (t + bb) : 0;
             const double slope = -2 * (u * u / (t + aa) + (y > 0 ? v * v / (t + bb) : 0));
-            if (!(slope < 0))
-                break;
+            if (!(slope < 0)) break;
             const double step = -(u * u + v * v - 1) / slope;
             t += step;
-            if (std::fabs(step) <= 1e-15 * aa)
-                break;
+            if (std::fabs(step) <= 1e-15 * aa) break;
         }
         foot_x = aa * x / (t + aa);
         foot_y = y > 0 ? bb * y / (t + bb) : 0;
@@ -42,8 +40,7 @@ OpeningOutlines::OpeningOutlines(const Domain& domain, const std::vector<Opening
     : domain_(domain) {
     const bool mirror = domain.sides == Sides::mirror;
     const auto images = [&](double c, double width) {
-        if (mirror)
-            return std::vector<double>{c, -width - c, width - c};
+        if (mirror) return std::vector<double>{c, -width - c, width - c};
         return std::vector<double>{c, c - width, c + width};
     };
     std::vector<std::pair<double, double>> trenches;
@@ -73,11 +70,9 @@ void OpeningOutlines::add_trench(double from, double to) {
 }
 
 double OpeningOutlines::fold(double v, double low, double width) const {
-    if (v >= low && v <= low + width)
-        return v;
+    if (v >= low && v <= low + width) return v;
     double u = (v - low) / width;
-    if (domain_.sides == Sides::periodic)
-        return low + width * (u - std::floor(u));
+    if (domain_.sides == Sides::periodic) return low + width * (u - std::floor(u));
     u -= 2 * std::floor(0.5 * u); // [0, 2)
     return low + width * (u > 1 ? 2 - u : u);
 }
@@ -88,18 +83,14 @@ double OpeningOutlines::distance(double x, double y) const {
     double best = 1e30;
     if (!edges_.empty()) {
         const auto above = std::upper_bound(edges_.begin(), edges_.end(), x);
-        if (above != edges_.end())
-            best = *above - x;
-        if (above != edges_.begin())
-            best = std::min(best, x - *(above - 1));
-        if ((above - edges_.begin()) % 2 == 1)
-            best = -best;
+        if (above != edges_.end()) best = *above - x;
+        if (above != edges_.begin()) best = std::min(best, x - *(above - 1));
+        if ((above - edges_.begin()) % 2 == 1) best = -best;
     }
     for (const Via& v : vias_) {
         const double dx = std::fabs(x - v.x), dy = std::fabs(y - v.y);
         const double nearest = best + v.largest; // it must come closer than this to matter
-        if (nearest <= 0 || dx * dx + dy * dy >= nearest * nearest)
-            continue;
+        if (nearest <= 0 || dx * dx + dy * dy >= nearest * nearest) continue;
         best = std::min(best, v.a == v.b ? std::sqrt(dx * dx + dy * dy) - v.a
                                          : ellipse_distance(dx, dy, v.a, v.b));
     }

@@ -44,33 +44,27 @@ private:
             any_out = any_out || beyond(v, axis, side) > 0;
             any_in = any_in || beyond(v, axis, side) < 0;
         }
-        if (!any_out)
-            return out.push_back(p);
+        if (!any_out) return out.push_back(p);
         Polygon kept, moved;
         for (std::size_t n = 0; n < p.size(); ++n) {
             const int a = p[n], b = p[(n + 1) % p.size()];
             const double da = beyond(a, axis, side), db = beyond(b, axis, side);
-            if (da <= 0)
-                kept.push_back(a);
-            if (da >= 0)
-                moved.push_back(a);
+            if (da <= 0) kept.push_back(a);
+            if (da >= 0) moved.push_back(a);
             if (da * db < 0) {
                 const int c = cut(a, b, axis, side);
                 kept.push_back(c);
                 moved.push_back(c);
             }
         }
-        if (any_in && kept.size() > 2)
-            out.push_back(kept);
+        if (any_in && kept.size() > 2) out.push_back(kept);
         for (int& v : moved)
             v = shift(v, axis, side);
-        if (moved.size() > 2)
-            out.push_back(moved);
+        if (moved.size() > 2) out.push_back(moved);
     }
 
     int cut(int a, int b, int axis, int side) {
-        if (a > b)
-            std::swap(a, b); // the same point from both elements at the edge
+        if (a > b) std::swap(a, b); // the same point from both elements at the edge
         int& known =
             cuts_.emplace(std::array<int, 3>{a, b, 2 * axis + (side > 0)}, -1).first->second;
         if (known < 0) {
@@ -149,8 +143,7 @@ std::vector<int> clip_to_period(const Domain& domain, Surface& s) {
                 }
     }
     s.corners = std::move(corners);
-    if (clipped)
-        compact(s);
+    if (clipped) compact(s);
     return origin;
 }
 

@@ -45,10 +45,8 @@ struct QuadCaster::Scene {
     Vec3 middle;                                   ///< subtracted from what Embree sees
 
     ~Scene() {
-        if (scene)
-            rtcReleaseScene(scene);
-        if (device)
-            rtcReleaseDevice(device);
+        if (scene) rtcReleaseScene(scene);
+        if (device) rtcReleaseDevice(device);
     }
     void add_images(const Domain&, const Surface&, double skirt);
     void add_image(const Domain&, const Surface&, int sx, int sy, double skirt);
@@ -70,8 +68,7 @@ void filter_start(const RTCFilterFunctionNArguments* args) {
     // What lies behind the plane of the element cannot be in front of a ray that has just left it.
     if (!reject && ray->tfar < start->near)
         reject = (start->centre[quad] - start->from_centre).dot(start->from_normal) < 1e-9;
-    if (reject)
-        args->valid[0] = 0;
+    if (reject) args->valid[0] = 0;
 }
 
 } // namespace
@@ -80,10 +77,8 @@ void QuadCaster::Scene::add_image(const Domain& domain, const Surface& surface, 
                                   double skirt) {
     const bool mirror = domain.sides == Sides::mirror;
     const auto moved = [&](Vec3 p) {
-        if (sx != 0)
-            p.x = mirror ? sx * domain.width_x() - p.x : p.x + sx * domain.width_x();
-        if (sy != 0)
-            p.y = mirror ? sy * domain.width_y() - p.y : p.y + sy * domain.width_y();
+        if (sx != 0) p.x = mirror ? sx * domain.width_x() - p.x : p.x + sx * domain.width_x();
+        if (sy != 0) p.y = mirror ? sy * domain.width_y() - p.y : p.y + sy * domain.width_y();
         return p;
     };
     const bool turned = mirror && (sx != 0) != (sy != 0);
@@ -97,8 +92,7 @@ void QuadCaster::Scene::add_image(const Domain& domain, const Surface& surface, 
             low_x = std::min(low_x, sx == 0 ? 0.0 : sx * p.x);
             low_y = std::min(low_y, sy == 0 ? 0.0 : sy * p.y);
         }
-        if (low_x > reach_x || low_y > reach_y)
-            continue;
+        if (low_x > reach_x || low_y > reach_y) continue;
         for (int& v : quad) {
             if (number[v] < 0) {
                 number[v] = static_cast<int>(vertices.size());
@@ -126,8 +120,7 @@ void QuadCaster::Scene::add_images(const Domain& domain, const Surface& surface,
     image.assign(surface.size(), {0, 0});
     for (int sy = -1; sy <= 1; ++sy)
         for (int sx = -1; sx <= 1; ++sx)
-            if (sx != 0 || sy != 0)
-                add_image(domain, surface, sx, sy, skirt);
+            if (sx != 0 || sy != 0) add_image(domain, surface, sx, sy, skirt);
 }
 
 void QuadCaster::Scene::build() {
@@ -166,8 +159,7 @@ void QuadCaster::Scene::build() {
 int QuadCaster::Scene::first_hit(StartContext& start, const Vec3& origin, const Vec3& direction,
                                  double reach, double slack, double& t) const {
     Vec3 o = origin - middle - 2 * slack * direction;
-    if (start.own_quad >= 0)
-        o += slack * start.from_normal;
+    if (start.own_quad >= 0) o += slack * start.from_normal;
     RTCRayHit rh{};
     rh.ray.org_x = static_cast<float>(o.x);
     rh.ray.org_y = static_cast<float>(o.y);
@@ -219,11 +211,9 @@ void QuadCaster::fold(Ray& ray) const {
         const bool turn = domain_.sides == Sides::mirror && std::fmod(image, 2.0) != 0;
         for (Vec3* p : {&ray.origin, &ray.from_centre}) {
             (*p)[axis] -= image * width;
-            if (turn)
-                (*p)[axis] = -(*p)[axis];
+            if (turn) (*p)[axis] = -(*p)[axis];
         }
-        if (!turn)
-            continue;
+        if (!turn) continue;
         ray.direction[axis] = -ray.direction[axis];
         ray.from_normal[axis] = -ray.from_normal[axis];
     }
@@ -233,8 +223,7 @@ void QuadCaster::fold(Ray& ray) const {
 /// there.
 bool QuadCaster::enter(Ray& ray) const {
     if (ray.origin.z > z_top_) {
-        if (ray.direction.z >= 0)
-            return false;
+        if (ray.direction.z >= 0) return false;
         const double t = (z_top_ - ray.origin.z) / ray.direction.z;
         ray.origin += t * ray.direction;
         ray.length += t;
@@ -249,11 +238,9 @@ double QuadCaster::way_to_side(const Ray& ray, int& axis) const {
     const double half[2] = {0.5 * domain_.width_x(), 0.5 * domain_.width_y()};
     for (int a = 0; a < 2; ++a) {
         const double d = ray.direction[a];
-        if (d == 0)
-            continue;
+        if (d == 0) continue;
         const double t = ((d > 0 ? half[a] : -half[a]) - ray.origin[a]) / d;
-        if (t >= way)
-            continue;
+        if (t >= way) continue;
         way = t;
         axis = a;
     }
@@ -318,8 +305,7 @@ Hit QuadCaster::trace(const Vec3& origin, const Vec3& direction, int from_elemen
         return finish(ray, Hit::Kind::open, -1,
                       std::max(0.0, (z_open_ - ray.origin.z) / ray.direction.z));
     };
-    if (!enter(ray))
-        return direction.z > 0 ? to_open() : finish(ray, Hit::Kind::lost, -1, 0);
+    if (!enter(ray)) return direction.z > 0 ? to_open() : finish(ray, Hit::Kind::lost, -1, 0);
     StartContext start;
     rtcInitIntersectContext(&start.context);
     start.context.filter = filter_start;
@@ -336,10 +322,8 @@ Hit QuadCaster::trace(const Vec3& origin, const Vec3& direction, int from_elemen
         double t = 0;
         const int quad = scene.first_hit(start, ray.origin, ray.direction,
                                          std::min(side, top) + beyond * domain_.spacing, slack_, t);
-        if (quad >= 0)
-            return finish(ray, Hit::Kind::surface, quad, t);
-        if (top <= side)
-            return top < infinite ? to_open() : finish(ray, Hit::Kind::lost, -1, 0);
+        if (quad >= 0) return finish(ray, Hit::Kind::surface, quad, t);
+        if (top <= side) return top < infinite ? to_open() : finish(ray, Hit::Kind::lost, -1, 0);
         ray.origin += side * ray.direction;
         ray.length += side;
         start.own_quad = -1;

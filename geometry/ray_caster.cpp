@@ -58,8 +58,7 @@ Hit RayCaster::trace(const Vec3& origin, const Vec3& direction, int from_element
     const Hit hit = impl_->segments ? impl_->segments->trace(origin, direction, from_element)
                                     : impl_->quads->trace(origin, direction, from_element);
     impl_->traced.add_one();
-    if (hit.kind == Hit::Kind::lost)
-        impl_->lost.add_one();
+    if (hit.kind == Hit::Kind::lost) impl_->lost.add_one();
     return hit;
 }
 

@@ -26,7 +26,7 @@ struct Hit {
 /// are three-dimensional, the surface infinite along y. Thread-safe; the same ray gives the same
 /// bits from any thread.
 class RayCaster {
-  public:
+public:
     RayCaster(const Domain&, const Surface&, double z_open);
     ~RayCaster();
     RayCaster(const RayCaster&) = delete;
@@ -40,7 +40,7 @@ class RayCaster {
     std::uint64_t traced() const;
     std::uint64_t lost() const;
 
-  private:
+private:
     struct Impl;
     std::unique_ptr<Impl> impl_;
 };

@@ -13,8 +13,7 @@ namespace {
 /// Point of the edge between two vertices on the plane where coordinate `across` is `plane`; the
 /// same bits from either of the faces that share the edge.
 Vec3 on_plane(const Surface& s, int from, int to, int across, double plane) {
-    if (from > to)
-        std::swap(from, to);
+    if (from > to) std::swap(from, to);
     const Vec3 &a = s.vertices[from], &b = s.vertices[to];
     const double share = (plane - a[across]) / (b[across] - a[across]);
     return a + share * (b - a);
@@ -39,8 +38,7 @@ Section::Section(const Domain& domain, const Surface& surface, int axis, double 
         const double across = axis == 0 ? domain.width_y() : domain.width_x();
         const double image = std::floor(plane / across + 0.5);
         plane -= image * across;
-        if (domain.sides == Sides::mirror && std::fmod(image, 2.0) != 0)
-            plane = -plane;
+        if (domain.sides == Sides::mirror && std::fmod(image, 2.0) != 0) plane = -plane;
         const double most = 0.5 * across - 1e-9 * domain.spacing;
         cut(surface, axis, std::clamp(plane, -most, most), own);
     }
@@ -76,8 +74,7 @@ void Section::cut(const Surface& s, int axis, double plane, std::vector<Piece>& 
         int above = 0;
         for (const int v : q)
             above += s.vertices[v][across] >= plane;
-        if (above == 0 || above == 4)
-            continue;
+        if (above == 0 || above == 4) continue;
         for (const auto& half : {std::array<int, 3>{q[0], q[1], q[3]}, {q[2], q[3], q[1]}}) {
             std::array<Vec3, 2> ends;
             int found = 0;
@@ -88,16 +85,14 @@ void Section::cut(const Surface& s, int axis, double plane, std::vector<Piece>& 
             }
             const Vec3 face = (s.vertices[half[1]] - s.vertices[half[0]])
                                   .cross(s.vertices[half[2]] - s.vertices[half[0]]);
-            if (found < 2 || face.length() == 0)
-                continue;
+            if (found < 2 || face.length() == 0) continue;
             const Vec3 n = face.normalized();
             Vec3 along = ends[1] - ends[0];
             if (-along.z * n[axis] + along[axis] * n.z < 0) {
                 std::swap(ends[0], ends[1]);
                 along = -along;
             }
-            if (along.length() == 0)
-                continue;
+            if (along.length() == 0) continue;
             out.push_back({ends[0][axis], ends[0].z, ends[1][axis], ends[1].z, n[axis], n.z,
                            static_cast<int>(e), s.chain[e]});
         }
@@ -126,8 +121,7 @@ std::optional<Section::Gap> Section::gap_at(double z, Side side) const {
         // The gas lies on the left of the walk: the left wall is walked down, the right one up.
         if (gap.left.piece->z1 > gap.left.piece->z0 || gap.right.piece->z1 < gap.right.piece->z0)
             continue;
-        if (gap.left.u < centre_ && centre_ < gap.right.u)
-            return gap;
+        if (gap.left.u < centre_ && centre_ < gap.right.u) return gap;
         const double share = std::min(gap.right.u, centre_ + 0.5 * width_) -
                              std::max(gap.left.u, centre_ - 0.5 * width_);
         if (share > best_share) {
@@ -141,11 +135,9 @@ std::optional<Section::Gap> Section::gap_at(double z, Side side) const {
 std::optional<Section::Crossing> Section::floor_below(double u, double z_from) const {
     std::optional<Crossing> best;
     for (const Piece& p : pieces_) {
-        if (p.u1 <= p.u0 || (p.u0 > u) == (p.u1 > u))
-            continue;
+        if (p.u1 <= p.u0 || (p.u0 > u) == (p.u1 > u)) continue;
         const double z = p.z0 + (u - p.u0) / (p.u1 - p.u0) * (p.z1 - p.z0);
-        if (z <= z_from && (!best || z > best->z))
-            best = Crossing{u, z, &p};
+        if (z <= z_from && (!best || z > best->z)) best = Crossing{u, z, &p};
     }
     return best;
 }

@@ -17,8 +17,7 @@ constexpr double far_away = 1e300;
 constexpr int most_folds = 16;
 
 double safe_inverse(double v) {
-    if (std::fabs(v) > 1.0 / far_away)
-        return 1.0 / v;
+    if (std::fabs(v) > 1.0 / far_away) return 1.0 / v;
     return std::signbit(v) ? -far_away : far_away;
 }
 
@@ -81,11 +80,9 @@ SegmentCaster::SegmentCaster(const Domain& domain, const Surface& surface, doubl
 /// Moves the frame to the image in which the ray is at t.
 void SegmentCaster::fold_into_period(Ray& ray, double t) const {
     const double x = ray.ox + t * ray.dx - x_min_;
-    if (x >= 0 && x <= width_)
-        return;
+    if (x >= 0 && x <= width_) return;
     const double image = std::floor(x / width_);
-    if (image == 0)
-        return;
+    if (image == 0) return;
     ray.ox -= image * width_;
     if (domain_.sides == Sides::mirror && std::fmod(image, 2.0) != 0) {
         ray.ox = -ray.ox;
@@ -96,8 +93,7 @@ void SegmentCaster::fold_into_period(Ray& ray, double t) const {
 /// Brings the ray to the grid; false if it never gets there.
 bool SegmentCaster::enter(Ray& ray) const {
     if (ray.oz >= z_top_) {
-        if (ray.dz >= 0)
-            return false;
+        if (ray.dz >= 0) return false;
         ray.t = (z_top_ - ray.oz) / ray.dz;
     }
     fold_into_period(ray, ray.t);
@@ -125,14 +121,12 @@ bool SegmentCaster::leave(Ray& ray, const Room& room, double tx, double tz) cons
     const int beyond_x = right ? r.x1 + 1 : r.x0 - 1, beyond_z = up ? r.z1 + 1 : r.z0 - 1;
     ray.ix = aside ? beyond_x : ix;
     ray.iz = aside ? iz : beyond_z;
-    if (ray.ix < 0 || ray.ix >= nx_)
-        return cross_side(ray);
+    if (ray.ix < 0 || ray.ix >= nx_) return cross_side(ray);
     return ray.iz >= 0;
 }
 
 bool SegmentCaster::cross_side(Ray& ray) const {
-    if (++ray.folds > most_folds)
-        return false;
+    if (++ray.folds > most_folds) return false;
     const bool right = ray.ix >= nx_;
     if (domain_.sides == Sides::periodic) {
         ray.ox += right ? -width_ : width_;
@@ -153,8 +147,7 @@ void SegmentCaster::test_runs(const Ray& ray, const Room& room, Best& best) cons
         const auto facing = [&](const std::array<double, 2>& n) {
             return n[0] * ray.dx + n[1] * ray.dz;
         };
-        if (facing(run->normal_first) > 1e-9 && facing(run->normal_last) > 1e-9)
-            continue;
+        if (facing(run->normal_first) > 1e-9 && facing(run->normal_last) > 1e-9) continue;
         std::array<double, 8> side;
         for (int k = 0; k < 8; ++k)
             side[k] = ray.dx * (run->z[k] - ray.oz) - ray.dz * (run->x[k] - ray.ox);
@@ -173,15 +166,12 @@ void SegmentCaster::test_runs(const Ray& ray, const Room& room, Best& best) cons
 void SegmentCaster::test_segment(const Ray& ray, const Run& run, int k, double share,
                                  Best& best) const {
     const int element = run.element + k;
-    if (element == ray.from && ray.folds == 0)
-        return;
+    if (element == ray.from && ray.folds == 0) return;
     const double ta = ray.dx * (run.x[k] - ray.ox) + ray.dz * (run.z[k] - ray.oz);
     const double tb = ray.dx * (run.x[k + 1] - ray.ox) + ray.dz * (run.z[k + 1] - ray.oz);
     const double t = ta + share * (tb - ta);
-    if (t < -slack_ || t >= best.t)
-        return;
-    if (t < slack_ && ray.from >= 0 && behind_at_start(ray.from, element))
-        return;
+    if (t < -slack_ || t >= best.t) return;
+    if (t < slack_ && ray.from >= 0 && behind_at_start(ray.from, element)) return;
     best = {t, share, element};
 }
 
@@ -196,8 +186,7 @@ Hit SegmentCaster::finish_hit(const Ray& ray, const Best& best) const {
     hit.point = Vec3(std::clamp(x, x_min_, x_min_ + width_), ray.y + t * ray.dy,
                      e[1] + best.share * (e[3] - e[1]));
     hit.direction = ray.direction;
-    if (ray.flipped)
-        hit.direction.x = -hit.direction.x;
+    if (ray.flipped) hit.direction.x = -hit.direction.x;
     return hit;
 }
 
@@ -225,15 +214,13 @@ bool SegmentCaster::starts_in_joint(const Vec3& origin, const Vec3& direction, i
         if (std::fabs(own[2 * end] - origin.x) + std::fabs(own[2 * end + 1] - origin.z) > slack_)
             continue;
         const std::array<double, 2> n = normal_beyond(from, end);
-        if (!concave_[from][end] || n[0] * direction.x + n[1] * direction.z >= 0)
-            continue;
+        if (!concave_[from][end] || n[0] * direction.x + n[1] * direction.z >= 0) continue;
         const bool image = joined_[from][end] < 0;
         hit.kind = Hit::Kind::surface;
         hit.element = image ? from : joined_[from][end];
         hit.point = origin;
         hit.direction = direction;
-        if (image)
-            hit.direction.x = -direction.x;
+        if (image) hit.direction.x = -direction.x;
         return true;
     }
     return false;
@@ -248,8 +235,7 @@ Hit SegmentCaster::finish_open(Ray& ray) const {
     const double x = ray.ox + t * ray.dx;
     hit.point = Vec3(std::clamp(x, x_min_, x_min_ + width_), ray.y + t * ray.dy, z_open_);
     hit.direction = ray.direction;
-    if (ray.flipped)
-        hit.direction.x = -hit.direction.x;
+    if (ray.flipped) hit.direction.x = -hit.direction.x;
     return hit;
 }
 
@@ -259,10 +245,8 @@ Hit SegmentCaster::trace(const Vec3& origin, const Vec3& direction, int from_ele
     lost.point = origin;
     lost.direction = direction;
     const double in_plane = std::sqrt(direction.x * direction.x + direction.z * direction.z);
-    if (!(in_plane > 1e-12))
-        return lost; // along y: it meets nothing and never gets out
-    if (from_element >= 0 && starts_in_joint(origin, direction, from_element, lost))
-        return lost;
+    if (!(in_plane > 1e-12)) return lost; // along y: it meets nothing and never gets out
+    if (from_element >= 0 && starts_in_joint(origin, direction, from_element, lost)) return lost;
     Ray ray;
     ray.ox = origin.x;
     ray.oz = origin.z;
@@ -276,21 +260,16 @@ Hit SegmentCaster::trace(const Vec3& origin, const Vec3& direction, int from_ele
     ray.positive = 0;
     ray.from = from_element;
     ray.direction = direction;
-    if (!enter(ray))
-        return ray.dz > 0 ? finish_open(ray) : lost;
+    if (!enter(ray)) return ray.dz > 0 ? finish_open(ray) : lost;
     Best best;
     for (;;) {
         const Room& room = rooms_[room_of_[ray.iz * nx_ + ray.ix]];
-        if (room.end > room.first)
-            test_runs(ray, room, best);
+        if (room.end > room.first) test_runs(ray, room, best);
         const double tx = ((ray.rightwards() ? room.x_high : room.x_low) - ray.ox) * ray.inverse_x;
         const double tz = ((ray.upwards() ? room.z_high : room.z_low) - ray.oz) * ray.inverse_z;
-        if (best.element >= 0 && best.t <= std::min(tx, tz) + slack_)
-            return finish_hit(ray, best);
-        if (!leave(ray, room, tx, tz))
-            return lost;
-        if (ray.iz >= nz_)
-            return finish_open(ray);
+        if (best.element >= 0 && best.t <= std::min(tx, tz) + slack_) return finish_hit(ray, best);
+        if (!leave(ray, room, tx, tz)) return lost;
+        if (ray.iz >= nz_) return finish_open(ray);
     }
 }
 

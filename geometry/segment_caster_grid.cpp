@@ -58,8 +58,7 @@ void SegmentCaster::fill_cells(const Surface& surface) {
     }
     room_of_.assign(lists.size(), -1);
     for (int c = 0; c < nx_ * nz_; ++c) {
-        if (lists[c].empty())
-            continue;
+        if (lists[c].empty()) continue;
         Room own = room({c % nx_, c % nx_, c / nx_, c / nx_});
         own.first = static_cast<int>(runs_.size());
         add_runs(lists[c], surface);
@@ -104,8 +103,7 @@ SegmentCaster::Run SegmentCaster::make_run(int first, int count) const {
         const auto& e = ends_[first + std::min(k, count - 1)];
         run.x[k] = k < count ? e[0] : e[2];
         run.z[k] = k < count ? e[1] : e[3];
-        if (k >= count)
-            continue;
+        if (k >= count) continue;
         nx -= e[3] - e[1];
         nz += e[2] - e[0];
     }
@@ -162,8 +160,7 @@ std::vector<int> SegmentCaster::cells_by_clearance() const {
         }
     std::vector<int> order;
     for (int c = 0; c < nx_ * nz_; ++c)
-        if (clear[c] > 0)
-            order.push_back(c);
+        if (clear[c] > 0) order.push_back(c);
     std::stable_sort(order.begin(), order.end(), [&](int a, int b) { return clear[a] > clear[b]; });
     return order;
 }
@@ -172,22 +169,17 @@ SegmentCaster::Rectangle SegmentCaster::grow(int ix, int iz, const std::vector<i
     const int stride = nx_ + 1;
     Rectangle r{ix, ix, iz, iz};
     const auto empty = [&](int x0, int x1, int z0, int z1) {
-        if (x0 < 0 || x1 >= nx_ || z0 < 0 || z1 >= nz_)
-            return false;
+        if (x0 < 0 || x1 >= nx_ || z0 < 0 || z1 >= nz_) return false;
         return sums[(z1 + 1) * stride + x1 + 1] - sums[z0 * stride + x1 + 1] -
                    sums[(z1 + 1) * stride + x0] + sums[z0 * stride + x0] ==
                0;
     };
     for (bool grew = true; grew;) {
         grew = false;
-        if (empty(r.x0 - 1, r.x0 - 1, r.z0, r.z1))
-            --r.x0, grew = true;
-        if (empty(r.x1 + 1, r.x1 + 1, r.z0, r.z1))
-            ++r.x1, grew = true;
-        if (empty(r.x0, r.x1, r.z0 - 1, r.z0 - 1))
-            --r.z0, grew = true;
-        if (empty(r.x0, r.x1, r.z1 + 1, r.z1 + 1))
-            ++r.z1, grew = true;
+        if (empty(r.x0 - 1, r.x0 - 1, r.z0, r.z1)) --r.x0, grew = true;
+        if (empty(r.x1 + 1, r.x1 + 1, r.z0, r.z1)) ++r.x1, grew = true;
+        if (empty(r.x0, r.x1, r.z0 - 1, r.z0 - 1)) --r.z0, grew = true;
+        if (empty(r.x0, r.x1, r.z1 + 1, r.z1 + 1)) ++r.z1, grew = true;
     }
     return r;
 }
@@ -195,8 +187,7 @@ SegmentCaster::Rectangle SegmentCaster::grow(int ix, int iz, const std::vector<i
 void SegmentCaster::find_rectangles() {
     const std::vector<int> sums = occupancy_sums();
     for (const int c : cells_by_clearance()) {
-        if (room_of_[c] >= 0)
-            continue;
+        if (room_of_[c] >= 0) continue;
         const Rectangle r = grow(c % nx_, c / nx_, sums);
         for (int iz = r.z0; iz <= r.z1; ++iz)
             for (int ix = r.x0; ix <= r.x1; ++ix)

@@ -20,7 +20,7 @@ struct Film {
 /// film, with bottom = 0, if there is one). Where the mask has openings the front says so, not
 /// the stack. Lookups cost O(log films).
 class Stack {
-  public:
+public:
     Stack() = default;
     /// films: from top to bottom; each bottom equals the next top; throws InternalError otherwise.
     explicit Stack(std::vector<Film> films);
@@ -34,7 +34,7 @@ class Stack {
     /// infinity if there is none.
     double distance_to_interface(const Vec3& p, const Vec3& direction) const;
 
-  private:
+private:
     std::vector<Film> films_;
 };
 

@@ -40,8 +40,7 @@ struct Field {
 
     const openvdb::math::Transform& transform() const { return *transform_ptr; }
     VectorType operator()(const openvdb::Vec3d& p, float) const {
-        if (motion == Motion::spin)
-            return {float(p.z()), 0, float(-p.x())};
+        if (motion == Motion::spin) return {float(p.z()), 0, float(-p.x())};
         const openvdb::Vec3d v = p * (-shrink_rate(p.z() / p.length()) / p.length());
         return {float(v.x()), float(v.y()), float(v.z())};
     }
@@ -123,8 +122,7 @@ nlohmann::json sphere() {
         const double b =
             seconds([&] { b_cpu = process_seconds([&] { advection.advect(0, step); }); });
         elements = surface.size();
-        if (n == 0)
-            continue; // the first pair warms up
+        if (n == 0) continue; // the first pair warms up
         ours.push_back(a);
         with_contour.push_back(a + contour);
         theirs.push_back(b);
@@ -219,8 +217,7 @@ nlohmann::json disk(int cells) {
                 const double side = (std::abs(j) - 6) * h, flat = notched_disk({i * h, 0, k * h});
                 const double d =
                     side > 0 && flat > 0 ? std::hypot(side, flat) : std::max(side, flat);
-                if (std::fabs(d) < 3 * h)
-                    write.setValue({i, j, k}, float(d));
+                if (std::fabs(d) < 3 * h) write.setValue({i, j, k}, float(d));
             }
     openvdb::tools::signedFloodFill(grid->tree());
     Field field;

@@ -118,8 +118,7 @@ nlohmann::json run(const std::string& name, const RayCaster& caster, const BareE
 std::vector<int> walls_of(const Surface& s) {
     std::vector<int> walls;
     for (int e = 0; e < static_cast<int>(s.size()); ++e)
-        if (std::fabs(s.normal[e].z) < 0.5)
-            walls.push_back(e);
+        if (std::fabs(s.normal[e].z) < 0.5) walls.push_back(e);
     return walls;
 }
 

@@ -23,8 +23,7 @@ class ScratchFolder {
 public:
     ScratchFolder() {
         std::string name = (std::filesystem::temp_directory_path() / "rille-test-XXXXXX").string();
-        if (!mkdtemp(name.data()))
-            throw std::runtime_error("no scratch folder");
+        if (!mkdtemp(name.data())) throw std::runtime_error("no scratch folder");
         path_ = name;
     }
     ~ScratchFolder() {
@@ -108,8 +107,7 @@ inline SurfaceState trench_state(const Case& c, double share, double time_s) {
     for (std::size_t e = 0; e < n; ++e) {
         const Vec3 p = state.surface.centre[e];
         const bool wall = std::fabs(state.surface.normal[e].x) > 0.9;
-        if (wall && p.z < 0)
-            state.grown.thickness[0][e] = 1.5 * share;
+        if (wall && p.z < 0) state.grown.thickness[0][e] = 1.5 * share;
         state.film.push_back(p.z > 0 ? 0 : p.z > -240 ? 1 : p.z > -252 ? 2 : 3);
         state.material.push_back(wall && p.z < 0 ? 3 : c.films[state.film.back()].material);
         state.rate.push_back(wall ? 0.01 : 4.1);

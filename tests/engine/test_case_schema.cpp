@@ -30,8 +30,7 @@ Json value_of(const YamlNode& node) {
             array.push_back(value_of(item));
         return array;
     }
-    if (node.is_empty())
-        return nullptr;
+    if (node.is_empty()) return nullptr;
     if (!node.is_quoted && (node.text == "true" || node.text == "false"))
         return node.text == "true";
     if (!node.is_quoted && std::regex_match(node.text, std::regex("-?[0-9]+")))
@@ -52,8 +51,7 @@ bool accepts(const Json& schema, const Json& value);
 
 bool accepts_object(const Json& schema, const Json& value) {
     for (const Json& key : schema.value("required", Json::array()))
-        if (!value.contains(key.get<std::string>()))
-            return false;
+        if (!value.contains(key.get<std::string>())) return false;
     const Json known = schema.value("properties", Json::object());
     const Json others = schema.value("additionalProperties", Json(true));
     for (const auto& [key, member] : value.items()) {
@@ -73,12 +71,10 @@ bool accepts_number(const Json& schema, double value) {
 
 /// The keywords that the schema uses, by the rules of draft 2020-12.
 bool accepts(const Json& schema, const Json& value) {
-    if (schema.contains("type") && !has_type(value, schema["type"]))
-        return false;
+    if (schema.contains("type") && !has_type(value, schema["type"])) return false;
     if (schema.contains("enum")) {
         const auto& words = schema["enum"];
-        if (std::find(words.begin(), words.end(), value) == words.end())
-            return false;
+        if (std::find(words.begin(), words.end(), value) == words.end()) return false;
     }
     if (schema.contains("anyOf")) {
         const auto& any = schema["anyOf"];
@@ -89,12 +85,9 @@ bool accepts(const Json& schema, const Json& value) {
         !std::regex_search(value.get<std::string>(),
                            std::regex(schema["pattern"].get<std::string>())))
         return false;
-    if (value.is_number())
-        return accepts_number(schema, value.get<double>());
-    if (value.is_object())
-        return accepts_object(schema, value);
-    if (!value.is_array())
-        return true;
+    if (value.is_number()) return accepts_number(schema, value.get<double>());
+    if (value.is_object()) return accepts_object(schema, value);
+    if (!value.is_array()) return true;
     const std::size_t most = schema.value("maxItems", std::size_t{1} << 30);
     if (value.size() < schema.value("minItems", std::size_t{0}) || value.size() > most)
         return false;

@@ -181,8 +181,7 @@ TEST_CASE("fluorocarbon etches oxide at sensible rates", "[chemistry]") {
     // A polymer film under full ion flux is removed; without ions it grows slowly, on anything.
     within(rate(c, "fluorocarbon polymer", fluorocarbon), 50, 1000);
     for (const std::string& name : c.materials)
-        if (name != "W")
-            within(rate(c, name, fluorocarbon, 0), -3, -0.2);
+        if (name != "W") within(rate(c, name, fluorocarbon, 0), -3, -0.2);
     CHECK(respond(c, 0, fluorocarbon, 0).grown_material ==
           static_cast<int>(c.materials.size()) - 1);
     // A plasma with more radicals and more bias, as for a small contact.

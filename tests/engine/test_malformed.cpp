@@ -36,8 +36,7 @@ std::string report_of(const fs::path& path) {
 TEST_CASE("malformed case files are refused with exactly the stated report") {
     std::vector<fs::path> files;
     for (const auto& entry : fs::directory_iterator(std::string(RILLE_TESTS) + "/data/malformed"))
-        if (entry.path().extension() == ".yaml")
-            files.push_back(entry.path());
+        if (entry.path().extension() == ".yaml") files.push_back(entry.path());
     std::sort(files.begin(), files.end());
     CHECK(files.size() >= 20);
     for (fs::path path : files) {

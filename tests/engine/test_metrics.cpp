@@ -120,8 +120,7 @@ TEST_CASE("metrics: sampling errors from the batches") {
     // Left and right walls that err against each other leave the CD as it is.
     for (auto& batch : state.displacement)
         for (std::size_t e = 0; e < batch.size(); ++e)
-            if (state.surface.centre[e].x < 0)
-                batch[e] = -batch[e];
+            if (state.surface.centre[e].x < 0) batch[e] = -batch[e];
     CHECK(measure(c, state).find("top cd")->sampling_error == Approx(0).margin(1e-9));
 }
 

@@ -24,21 +24,18 @@ std::vector<std::string> split(const std::string& text, char separator) {
     std::istringstream stream(text);
     for (std::string part; std::getline(stream, part, separator);)
         parts.push_back(part);
-    if (!text.empty() && text.back() == separator && separator == ',')
-        parts.emplace_back();
+    if (!text.empty() && text.back() == separator && separator == ',') parts.emplace_back();
     return parts;
 }
 
 /// Columns that hold words or numbers of things; every other one must name its unit.
 bool has_unit(const std::string& column) {
     for (const char* word : {"step", "material", "film", "chain"})
-        if (column == word)
-            return true;
+        if (column == word) return true;
     for (const char* unit :
          {"_nm", "_nm2", "_s", "_deg", "_nm_per_min", "_per_nm2_s", "_1", "_count", "_cells"}) {
         const std::size_t n = std::strlen(unit);
-        if (column.size() > n && column.compare(column.size() - n, n, unit) == 0)
-            return true;
+        if (column.size() > n && column.compare(column.size() - n, n, unit) == 0) return true;
     }
     return false;
 }

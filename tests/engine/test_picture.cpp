@@ -31,8 +31,7 @@ Image decode(const std::string& png) {
     } source{png};
     const auto read = [](void* closure, unsigned char* data, unsigned int length) {
         auto& from = *static_cast<Source*>(closure);
-        if (from.at + length > from.bytes.size())
-            return CAIRO_STATUS_READ_ERROR;
+        if (from.at + length > from.bytes.size()) return CAIRO_STATUS_READ_ERROR;
         std::memcpy(data, from.bytes.data() + from.at, length);
         from.at += length;
         return CAIRO_STATUS_SUCCESS;
@@ -92,8 +91,7 @@ std::vector<PictureFront> sample_fronts(const Case& c, int count, double end_s) 
 /// Leaves pictures for the eye where RILLE_TEST_PICTURES names a folder.
 void keep(const std::string& name, const std::string& svg, const std::string& png) {
     const char* folder = std::getenv("RILLE_TEST_PICTURES");
-    if (!folder)
-        return;
+    if (!folder) return;
     std::ofstream(std::string(folder) + "/" + name + ".svg") << svg;
     std::ofstream(std::string(folder) + "/" + name + ".png", std::ios::binary) << png;
 }

@@ -125,8 +125,7 @@ TEST_CASE("direct ions, extruded: walls a few beam spreads from vertical", "[dir
         double sum = 0, exact_sum = 0;
         for (std::size_t e = 0; e < s.size(); ++e) {
             const Vec3 c = s.centre[e];
-            if (c.x > 0 || s.normal[e].x < 0.5 || c.z < -depth + 5 || c.z > -5)
-                continue;
+            if (c.x > 0 || s.normal[e].x < 0.5 || c.z < -depth + 5 || c.z > -5) continue;
             const double psi = std::atan2(s.normal[e].x, s.normal[e].z);
             const double top = 0.5 * floor + depth * std::tan(tilt * degree);
             const double right = std::atan2(top - c.x, -c.z);
@@ -165,8 +164,7 @@ TEST_CASE("direct ions, extruded: first-step rate of a vertical wall", "[direct]
         std::vector<double> bin(40, 0.0), area(40, 0.0), exact(40, 0.0);
         for (std::size_t e = 0; e < s.size(); ++e) {
             const Vec3 c = s.centre[e];
-            if (s.normal[e].x < 0.5)
-                continue;
+            if (s.normal[e].x < 0.5) continue;
             const int b = static_cast<int>(-c.z / 10);
             bin[b] += ions.tally(0, int(e)) * s.area[e];
             area[b] += s.area[e];
@@ -207,8 +205,7 @@ TEST_CASE("direct ions: tallies of a yield over an open plane", "[direct]") {
                 {u(0.8191725133961645), u(0.6710436067037893), u(0.5497004779019703), 0.5});
             const double c = -(ion.direction.x * std::sin(psi * degree) +
                                ion.direction.z * std::cos(psi * degree));
-            if (c > 0)
-                sum += 3.0 * c / -ion.direction.z * yield(ion.energy_ev, c) / count;
+            if (c > 0) sum += 3.0 * c / -ion.direction.z * yield(ion.energy_ev, c) / count;
         }
         CAPTURE(psi);
         CHECK(direct.tally_at(0, 10, psi * degree) == Approx(sum).epsilon(0.015));
@@ -278,8 +275,7 @@ TEST_CASE("direct ions: conservative rates on a rough wall", "[direct]") {
     double total = 0, expected = 0, worst = 0, noise = 0;
     for (std::size_t e = 0; e < smooth.size(); ++e) {
         const Vec3 c = smooth.centre[e];
-        if (smooth.normal[e].x < 0.5 || c.z > -8 || c.z < -292)
-            continue;
+        if (smooth.normal[e].x < 0.5 || c.z > -8 || c.z < -292) continue;
         total += bumpy.tally(0, int(e));
         expected += flat.tally(0, int(e));
         worst = std::max(worst, std::fabs(bumpy.tally(0, int(e)) / flat.tally(0, int(e)) - 1));

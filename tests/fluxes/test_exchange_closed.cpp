@@ -28,8 +28,7 @@ std::map<std::array<double, 3>, std::map<std::string, double>> read_table(const 
     std::vector<std::string> header;
     std::map<std::array<double, 3>, std::map<std::string, double>> table;
     while (std::getline(file, line)) {
-        if (line.empty() || line[0] == '#')
-            continue;
+        if (line.empty() || line[0] == '#') continue;
         std::stringstream cells(line);
         std::string cell;
         std::vector<std::string> words;
@@ -97,10 +96,8 @@ std::map<std::string, double> summary(const Feature& f, const std::vector<double
     double floor = 0, floor_area = 0, wall = 0, wall_area = 0;
     for (int e = 0; e < int(flux.size()); ++e) {
         const double a = f.surface.area[e];
-        if (on_floor(f, e))
-            floor += a * flux[e], floor_area += a;
-        if (!on_wall(f, e))
-            continue;
+        if (on_floor(f, e)) floor += a * flux[e], floor_area += a;
+        if (!on_wall(f, e)) continue;
         wall += a * flux[e], wall_area += a;
         auto& ring = rings[std::round(-f.surface.centre[e].z * 1e6) / 1e6];
         ring.first += a * flux[e], ring.second += a;

@@ -161,8 +161,7 @@ TEST_CASE("exchange: direct flux on the floor of a hole", "[exchange]") {
     const Exchange x(d, s, caster, {64, 1, 0});
     double sum = 0, area = 0;
     for (std::size_t e = 0; e < s.size(); ++e)
-        if (s.centre[e].z < -399)
-            sum += s.area[e] * x.direct()[e], area += s.area[e];
+        if (s.centre[e].z < -399) sum += s.area[e] * x.direct()[e], area += s.area[e];
     const double l2 = 1600;
     const double exact = 2 / (2 + l2 + std::sqrt((2 + l2) * (2 + l2) - 4));
     INFO("deviation " << sum / area / exact - 1);

@@ -71,8 +71,7 @@ TEST_CASE("open sky: closed voids are dark and do not matter", "[direct]") {
     CHECK_FALSE(b.floating_pieces());
     const InPlane plane = resolve_in_plane(GaussianSlopes{100, 0.2});
     for (std::size_t e = 0; e < with_void.size(); ++e) {
-        if (e < open.size())
-            CHECK(b.flux(plane, int(e)) == a.flux(plane, int(e)));
+        if (e < open.size()) CHECK(b.flux(plane, int(e)) == a.flux(plane, int(e)));
         if (e >= open.size()) {
             CHECK(b.flux(plane, int(e)) == 0);
             CHECK(b.visible(int(e), 0.5).empty());
@@ -107,8 +106,7 @@ TEST_CASE("open sky: floating pieces cast shadows", "[direct]") {
     for (std::size_t e = 0; e < s.size(); ++e) {
         const double part = sky.flux(broad, int(e)) * s.area[e];
         all += part;
-        if (e < fixed)
-            without += part;
+        if (e < fixed) without += part;
     }
     CHECK(all == Approx(80).epsilon(0.01));
     CHECK(without < 0.95 * 80);
@@ -130,8 +128,7 @@ TEST_CASE("open sky: a period may start anywhere", "[direct]") {
     for (std::size_t e = 0; e < a.size(); ++e)
         for (std::size_t f = 0; f < b.size(); ++f) {
             const double x = std::remainder(b.centre[f].x - a.centre[e].x - 40, 80);
-            if (std::fabs(x) > 1e-9 || std::fabs(b.centre[f].z - a.centre[e].z) > 1e-9)
-                continue;
+            if (std::fabs(x) > 1e-9 || std::fabs(b.centre[f].z - a.centre[e].z) > 1e-9) continue;
             CHECK(std::fabs(sky_a.flux(plane, int(e)) - sky_b.flux(plane, int(f))) < 1e-12);
         }
 }

@@ -21,8 +21,7 @@ bool is_net(const ScrambledPoints& points, int pair, int m, std::uint32_t first)
             boxes.insert((std::uint64_t(std::ldexp(u[0], a)) << 32) |
                          std::uint64_t(std::ldexp(u[1], m - a)));
         }
-        if (boxes.size() != n)
-            return false;
+        if (boxes.size() != n) return false;
     }
     return true;
 }

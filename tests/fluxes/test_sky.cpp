@@ -134,10 +134,8 @@ TEST_CASE("direct cosine flux under an overhang", "[sky]") {
                                       0.01);
     const Sky sky(domain, s);
     for (int e = 0; e < int(s.size()); ++e) {
-        if (s.normal[e].z < -0.5)
-            CHECK(sky.cosine_flux(e) == 0);
-        if (s.centre[e].z > -1.99)
-            continue;
+        if (s.normal[e].z < -0.5) CHECK(sky.cosine_flux(e) == 0);
+        if (s.centre[e].z > -1.99) continue;
         const double x = s.centre[e].x;
         for (const auto& [offset, exact] :
              {std::pair(0.005, 0.196116), {0.505, 0.185695}, {0.805, 0.156506}})

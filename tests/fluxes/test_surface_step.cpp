@@ -54,13 +54,11 @@ struct Scene {
         }
         SurfaceChemistry polymer{"polymer", 40, {}, {}};
         polymer.processes = {PhysicalSputtering{{SurfacePart::Kind::whole, -1}, {0}}};
-        if (film)
-            polymer.processes.push_back(Deposition{1, -1, 0.05, 40, 1, {}});
+        if (film) polymer.processes.push_back(Deposition{1, -1, 0.05, 40, 1, {}});
         mechanism.surfaces = {silicon, polymer};
         for (std::size_t e = 0; e <= surface.size(); ++e) {
             reach.first.push_back(int(2 * e));
-            if (e < surface.size())
-                reach.material.insert(reach.material.end(), {0, 1});
+            if (e < surface.size()) reach.material.insert(reach.material.end(), {0, 1});
         }
     }
 
@@ -187,8 +185,7 @@ TEST_CASE("rates over the normal agree with the responses", "[surface_step]") {
         const auto& c = scene.surface.centre[e];
         const bool near_corner = std::fabs(std::fabs(c.x) - 10) < 6 && std::fabs(n.z) > 0.5;
         const bool near_end = std::fabs(n.z) < 0.5 && (c.z > -6 || c.z < -34);
-        if (near_corner || near_end)
-            continue;
+        if (near_corner || near_end) continue;
         ++compared;
         CHECK(std::fabs(rate - step.response[e].rate) < 1e-3 * std::fabs(open));
         CHECK(step.rates.row(e, 1) >= 0);
@@ -356,8 +353,7 @@ TEST_CASE("surface step of a round hole", "[surface_step]") {
     scene.reach = {};
     for (std::size_t e = 0; e <= scene.surface.size(); ++e) {
         scene.reach.first.push_back(int(e));
-        if (e < scene.surface.size())
-            scene.reach.material.push_back(0);
+        if (e < scene.surface.size()) scene.reach.material.push_back(0);
     }
     scene.sampling.rays_per_element = 16;
     scene.sampling.ion_directions = 64;
@@ -371,8 +367,7 @@ TEST_CASE("surface step of a round hole", "[surface_step]") {
     CHECK(step.rates.angles.front() == 0);
     for (std::size_t e = 0; e < scene.surface.size(); ++e) {
         const auto& c = scene.surface.centre[e];
-        if (c.z > -1e-9)
-            CHECK(step.neutral[0][e] == Approx(1000).epsilon(1e-6));
+        if (c.z > -1e-9) CHECK(step.neutral[0][e] == Approx(1000).epsilon(1e-6));
         if (c.z < -15.9) {
             CHECK(step.neutral[0][e] < 900);
             CHECK(step.neutral[0][e] > 100);

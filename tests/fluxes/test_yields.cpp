@@ -75,11 +75,9 @@ int sputter_misses(Change change) {
     for (const SputterRow& row : sputter_table) {
         YamamuraTawaraLaw law = yamamura_tawara(row.projectile, row.target);
         change(law);
-        if (!agrees(yamamura_tawara_terms(law, 500).threshold_ev, row.threshold, 0.01))
-            ++misses;
+        if (!agrees(yamamura_tawara_terms(law, 500).threshold_ev, row.threshold, 0.01)) ++misses;
         for (int i = 0; i < 5; ++i)
-            if (!agrees(energy_yield(law, sputter_energies[i]), row.yield[i], 1e-4))
-                ++misses;
+            if (!agrees(energy_yield(law, sputter_energies[i]), row.yield[i], 1e-4)) ++misses;
     }
     return misses;
 }

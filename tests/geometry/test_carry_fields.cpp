@@ -41,8 +41,7 @@ double deviation(const Surface& s, const std::vector<double>& v, double value,
                  const std::function<bool(const Vec3&)>& skip) {
     double worst = 0;
     for (std::size_t e = 0; e < s.size(); ++e)
-        if (!skip(s.centre[e]))
-            worst = std::max(worst, std::fabs(v[e] / value - 1));
+        if (!skip(s.centre[e])) worst = std::max(worst, std::fabs(v[e] / value - 1));
     return worst;
 }
 
@@ -51,8 +50,7 @@ Distance pit(const Vec3& at, bool cusp) {
     return [=](const Vec3& q) {
         const Vec3 p = q - at;
         const auto arc = [](double x, double z) { return 18 - std::hypot(x, z); };
-        if (!cusp)
-            return std::max(arc(p.x, p.z), p.z);
+        if (!cusp) return std::max(arc(p.x, p.z), p.z);
         return std::max(std::max(arc(p.x - 14, p.z), arc(p.x + 14, p.z)), p.z);
     };
 }

@@ -372,13 +372,11 @@ TEST_CASE("round holes", "[metrology]") {
         part.vertices = s.vertices;
         for (Vec3& v : part.vertices) {
             for (int a = 0; a < 2; ++a)
-                if (std::fabs(v[a]) < 1e-9)
-                    v[a] = 0;
+                if (std::fabs(v[a]) < 1e-9) v[a] = 0;
             v -= Vec3(20, 20, 0);
         }
         for (std::size_t e = 0; e < s.size(); ++e)
-            if (s.centre[e].x > 0 && s.centre[e].y > 0)
-                add_element(part, s.corners[e]);
+            if (s.centre[e].x > 0 && s.centre[e].y > 0) add_element(part, s.corners[e]);
         FeatureSite corner = site;
         corner.centre_x = corner.centre_y = -20;
         CHECK(cd_at(quarter, part, corner, -40)->value == Approx(52).margin(1e-8));

@@ -52,21 +52,18 @@ Crossing brute_force(const Domain& domain, const Surface& s, const Vec3& o, cons
     for (int image = -3; image <= 3; ++image)
         for (int e = 0; e < static_cast<int>(s.size()); ++e) {
             const bool turn = domain.sides == Sides::mirror && image % 2 != 0;
-            if (e == from && image == 0)
-                continue;
+            if (e == from && image == 0) continue;
             const Vec3 a = s.vertices[s.corners[e][0]], b = s.vertices[s.corners[e][1]];
             const long double shift = image * static_cast<long double>(domain.width_x());
             const long double ax = shift + (turn ? -a.x : a.x) - o.x, az = a.z - o.z;
             const long double bx = shift + (turn ? -b.x : b.x) - o.x, bz = b.z - o.z;
             const long double side_a = d.x * az - d.z * ax, side_b = d.x * bz - d.z * bx;
-            if ((side_a < 0) == (side_b < 0))
-                continue;
+            if ((side_a < 0) == (side_b < 0)) continue;
             const long double plane = static_cast<long double>(d.x) * d.x + d.z * d.z;
             const long double ta = (d.x * ax + d.z * az) / plane,
                               tb = (d.x * bx + d.z * bz) / plane;
             const long double t = ta + (tb - ta) * side_a / (side_a - side_b);
-            if (t > 1e-9 && t < best.t)
-                best = {static_cast<double>(t), e};
+            if (t > 1e-9 && t < best.t) best = {static_cast<double>(t), e};
         }
     return best;
 }
@@ -92,19 +89,14 @@ TEST_CASE("extruded rays against brute force over explicit images", "[rays]") {
                 const Hit hit = caster.trace(o, d, e);
                 const Crossing wanted = brute_force(domain, s, o, d, e);
                 const bool open = wanted.element < 0;
-                if (open != (hit.kind == Hit::Kind::open))
-                    ++wrong;
-                if (open || hit.kind != Hit::Kind::surface)
-                    continue;
+                if (open != (hit.kind == Hit::Kind::open)) ++wrong;
+                if (open || hit.kind != Hit::Kind::surface) continue;
                 ++hits;
-                if (std::fabs(hit.distance - wanted.t) > 1e-7)
-                    ++wrong;
+                if (std::fabs(hit.distance - wanted.t) > 1e-7) ++wrong;
                 if (hit.element != wanted.element && std::abs(hit.element - wanted.element) != 1)
                     ++wrong;
-                if (std::fabs(hit.direction.length() - 1) > 1e-12)
-                    ++wrong;
-                if (hit.direction.dot(s.normal[hit.element]) > 0)
-                    ++wrong;
+                if (std::fabs(hit.direction.length() - 1) > 1e-12) ++wrong;
+                if (hit.direction.dot(s.normal[hit.element]) > 0) ++wrong;
             }
             CHECK(wrong == 0);
             CHECK(hits > 500);

@@ -53,15 +53,12 @@ Crossing brute_force(const Domain& domain, const Surface& s, const Vec3& o, cons
     for (int image = 0; image < 25; ++image)
         for (int e = 0; e < static_cast<int>(s.size()); ++e) {
             const int ix = image % 5 - 2, iy = image / 5 - 2;
-            if (e == from && ix == 0 && iy == 0)
-                continue;
+            if (e == from && ix == 0 && iy == 0) continue;
             const bool mirror = domain.sides == Sides::mirror;
             const auto corner = [&](int c) {
                 Vec3 p = s.vertices[s.corners[e][c]];
-                if (mirror && ix % 2 != 0)
-                    p.x = -p.x;
-                if (mirror && iy % 2 != 0)
-                    p.y = -p.y;
+                if (mirror && ix % 2 != 0) p.x = -p.x;
+                if (mirror && iy % 2 != 0) p.y = -p.y;
                 return p + Vec3(ix * domain.width_x(), iy * domain.width_y(), 0);
             };
             for (int half = 0; half < 2; ++half) {
@@ -69,13 +66,11 @@ Crossing brute_force(const Domain& domain, const Surface& s, const Vec3& o, cons
                            c = corner(half ? 1 : 3) - a;
                 const Vec3 n = b.cross(c);
                 const double along = n.dot(d);
-                if (along == 0 || n.length() == 0)
-                    continue;
+                if (along == 0 || n.length() == 0) continue;
                 const double t = n.dot(a - o) / along;
                 const Vec3 p = o + t * d - a;
                 const double u = n.dot(p.cross(c)) / n.dot(n), v = n.dot(b.cross(p)) / n.dot(n);
-                if (u >= 0 && v >= 0 && u + v <= 1 && t > 1e-6 && t < best.t)
-                    best = {t, e};
+                if (u >= 0 && v >= 0 && u + v <= 1 && t > 1e-6 && t < best.t) best = {t, e};
             }
         }
     return best;
@@ -112,10 +107,8 @@ TEST_CASE("full rays against brute force over explicit images", "[rays]") {
                 const Vec3 d = cosine_direction(s.normal[e], random(3), random(4));
                 const Hit hit = caster.trace(o, d, e);
                 const Crossing wanted = brute_force(domain, s, o, d, e);
-                if ((wanted.element < 0) != (hit.kind == Hit::Kind::open))
-                    ++unlike;
-                if (wanted.element < 0 || hit.kind != Hit::Kind::surface)
-                    continue;
+                if ((wanted.element < 0) != (hit.kind == Hit::Kind::open)) ++unlike;
+                if (wanted.element < 0 || hit.kind != Hit::Kind::surface) continue;
                 if (hit.element != wanted.element)
                     ++other;
                 else if (std::fabs((hit.distance - wanted.t) *

@@ -26,19 +26,14 @@ Domain domain(Symmetry symmetry, Sides sides, int nx, int ny, double h) {
 struct Edge {
     double thickness, angle, radius;
     bool solid(double u, double z) const {
-        if (z <= 0)
-            return true;
-        if (z > thickness)
-            return false;
+        if (z <= 0) return true;
+        if (z > thickness) return false;
         const double c = std::cos(angle), s = std::sin(angle);
-        if (u < z * c / s)
-            return false;
-        if (radius == 0)
-            return true;
+        if (u < z * c / s) return false;
+        if (radius == 0) return true;
         const double cu = (radius + c * (thickness - radius)) / s, cz = thickness - radius;
         const double along_wall = (u - cu) * c + (z - cz) * s;
-        if (along_wall <= 0 || u >= cu)
-            return true;
+        if (along_wall <= 0 || u >= cu) return true;
         return std::hypot(u - cu, z - cz) <= radius;
     }
 };
@@ -50,8 +45,7 @@ double brute(const std::function<bool(const Vec3&)>& solid, const Vec3& p, doubl
     double best = 1e9;
     for (double x = -reach; x <= reach; x += step)
         for (double z = -reach; z <= reach; z += step)
-            if (solid(p + Vec3(x, 0, z)) != here)
-                best = std::min(best, std::hypot(x, z));
+            if (solid(p + Vec3(x, 0, z)) != here) best = std::min(best, std::hypot(x, z));
     return here ? -best : best;
 }
 
@@ -79,8 +73,7 @@ TEST_CASE("mask edges of any angle and rounding against brute force", "[shape]")
                 const Vec3 p(x(random), 0, z(random));
                 const double exact = phi(p);
                 CAPTURE(angle, radius, p);
-                if (std::fabs(exact) > 4)
-                    continue;
+                if (std::fabs(exact) > 4) continue;
                 CHECK(solid(p) == (exact < 0));
                 CHECK(exact == Approx(brute(solid, p, std::fabs(exact) + 0.3, 0.05)).margin(0.075));
             }

@@ -23,14 +23,12 @@ Domain extruded(int cells, double h, Sides sides = Sides::mirror) {
 double floor_flux(const Surface& s, double x) {
     int at = 0;
     for (int e = 0; e < static_cast<int>(s.size()); ++e)
-        if (std::fabs(s.centre[e].x - x) < std::fabs(s.centre[at].x - x))
-            at = e;
+        if (std::fabs(s.centre[e].x - x) < std::fabs(s.centre[at].x - x)) at = e;
     const Vec3 p(x, 0, s.centre[at].z);
     double left = 1, right = 1;
     for (const Vec3& v : s.vertices) {
         const double dx = v.x - p.x, dz = v.z - p.z;
-        if (dz < 0.5)
-            continue;
+        if (dz < 0.5) continue;
         (dx < 0 ? left : right) =
             std::min(dx < 0 ? left : right, std::fabs(dx) / std::hypot(dx, dz));
     }
@@ -70,12 +68,10 @@ TEST_CASE("extruded lip keeps its corners", "[surface]") {
             const auto trench = [&](const Vec3& q) {
                 const Vec3 p = q - Vec3(shift, 0, 0.37 * shift);
                 const double in = w - std::fabs(p.x); // > 0 inside the opening
-                if (p.z >= 0)
-                    return in <= 0 ? p.z : std::hypot(in, p.z);
+                if (p.z >= 0) return in <= 0 ? p.z : std::hypot(in, p.z);
                 if (in <= 0) { // solid beside the opening, or below it
                     const double up = -p.z, wall = -in;
-                    if (p.z < -depth)
-                        return -std::min(up, std::hypot(wall, p.z + depth));
+                    if (p.z < -depth) return -std::min(up, std::hypot(wall, p.z + depth));
                     return -std::min(up, wall);
                 }
                 if (p.z >= -depth) {
@@ -162,8 +158,7 @@ TEST_CASE("extruded surfaces cover one period whatever the sides", "[surface]") 
             CHECK(consistent_chains(s, d));
             double sum = 0;
             for (std::size_t e = 0; e < s.size(); ++e)
-                if (s.chain[e] == 0)
-                    sum += s.area[e] * s.normal[e].z;
+                if (s.chain[e] == 0) sum += s.area[e] * s.normal[e].z;
             CHECK(std::fabs(sum / d.width_x() - 1) < 1e-9);
             for (std::size_t e = 0; e < s.size(); ++e)
                 CHECK(shape(s.centre[e] + s.normal[e] * 0.25) >
@@ -207,8 +202,7 @@ TEST_CASE("wedges and pillars keep their tips", "[surface]") {
                     const double d1 = n1.dot(p), d2 = n2.dot(p);
                     const Vec3 t1(-n1.z, 0, n1.x), t2(-n2.z, 0, n2.x);
                     double dist = std::max(d1, d2);
-                    if (t1.dot(p) > 0 && t2.dot(p) < 0)
-                        dist = p.length();
+                    if (t1.dot(p) > 0 && t2.dot(p) < 0) dist = p.length();
                     return ridge ? dist : -dist;
                 };
                 const Surface s = extract_surface(make_band(d, wedge, -400, 400));

@@ -43,8 +43,7 @@ TEST_CASE("full planes are contoured to round-off", "[surface]") {
             CAPTURE(tilt, turned);
             CHECK(largest_distance(s, plane) < 1e-12 * 60);
             for (std::size_t e = 0; e < s.size(); ++e)
-                if (s.area[e] > 1e-6)
-                    CHECK((s.normal[e] - n).length() < 1e-9);
+                if (s.area[e] > 1e-6) CHECK((s.normal[e] - n).length() < 1e-9);
             CHECK(projected_area_fault(s, d) < 1e-9);
             CHECK(loose_edges(s, d) == 0);
         }
@@ -123,8 +122,7 @@ TEST_CASE("full surfaces cover one period whatever the sides", "[surface]") {
             CHECK(loose_edges(s, d) == 0);
             double sum = 0;
             for (std::size_t e = 0; e < s.size(); ++e)
-                if (s.chain[e] == 0)
-                    sum += s.area[e] * s.normal[e].z;
+                if (s.chain[e] == 0) sum += s.area[e] * s.normal[e].z;
             CHECK(std::fabs(sum / (d.width_x() * d.width_y()) - 1) < 1e-9);
             double wrong = 0;
             int outside = 0;
@@ -149,12 +147,9 @@ TEST_CASE("a round via keeps its rim", "[surface]") {
         const double depth = 12.4;
         const auto via = [&](const Vec3& q) {
             const double r = std::hypot(q.x - 0.3, q.y + 0.2) - radius, z = q.z - 0.2;
-            if (z >= 0)
-                return r >= 0 ? z : std::hypot(r, z);
-            if (r < 0 && z > -depth)
-                return std::min(-r, z + depth);
-            if (r >= 0)
-                return -std::min(-z, z > -depth ? r : std::hypot(r, z + depth));
+            if (z >= 0) return r >= 0 ? z : std::hypot(r, z);
+            if (r < 0 && z > -depth) return std::min(-r, z + depth);
+            if (r >= 0) return -std::min(-z, z > -depth ? r : std::hypot(r, z + depth));
             return z + depth;
         };
         const Surface s = extract_surface(make_band(d, via, -depth, 1));

@@ -13,8 +13,7 @@ namespace {
 
 const IsolatedPart* find(const std::vector<IsolatedPart>& parts, IsolatedPart::Kind kind) {
     for (const auto& p : parts)
-        if (p.kind == kind)
-            return &p;
+        if (p.kind == kind) return &p;
     return nullptr;
 }
 
@@ -27,8 +26,7 @@ TEST_CASE("a void and a detached piece are found", "[topology]") {
     for (const Symmetry symmetry : {Symmetry::extruded, Symmetry::full})
         for (const Sides sides : {Sides::mirror, Sides::periodic})
             for (const double x : {3.3, 23.0}) { // inside; over a periodic side
-                if (sides == Sides::mirror && x > 10)
-                    continue;
+                if (sides == Sides::mirror && x > 10) continue;
                 Domain d;
                 d.symmetry = symmetry;
                 d.sides = sides;
@@ -37,8 +35,7 @@ TEST_CASE("a void and a detached piece are found", "[topology]") {
                 const Vec3 hole(x, symmetry == Symmetry::full ? -2.2 : 0, -12.3), drop(-6, 0, 12.1);
                 const auto away = [&](Vec3 p, const Vec3& c) {
                     Vec3 v = p - c;
-                    if (sides == Sides::periodic)
-                        v.x -= 48 * std::round(v.x / 48);
+                    if (sides == Sides::periodic) v.x -= 48 * std::round(v.x / 48);
                     return v.length();
                 };
                 const auto shape = [&](const Vec3& p) {

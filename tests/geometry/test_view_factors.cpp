@@ -27,8 +27,7 @@ struct Escapes {
 Vec3 random_point(const Surface& s, int e, double u, double v) {
     const auto& c = s.corners[e];
     const Vec3 a = s.vertices[c[0]], b = s.vertices[c[1]];
-    if (c[2] < 0)
-        return a + u * (b - a);
+    if (c[2] < 0) return a + u * (b - a);
     // Uniform over a symmetric trapezoid a b c d with parallel sides ab and dc.
     const Vec3 p = s.vertices[c[2]], q = s.vertices[c[3]];
     const double wide = (b - a).length(), narrow = (p - q).length();
@@ -76,8 +75,7 @@ TEST_CASE("view factors of a trench", "[rays]") {
         std::vector<double> p;
         for (int e = 0; e < static_cast<int>(s.size()); ++e) {
             const Vec3 a = s.vertices[s.corners[e][0]], b = s.vertices[s.corners[e][1]];
-            if (s.centre[e].z > -1e-9)
-                continue;
+            if (s.centre[e].z > -1e-9) continue;
             bins.push_back({e});
             if (s.normal[e].z > 0.5) {
                 const auto up = [&](double x) {

@@ -20,19 +20,15 @@ inline int brute_hit(const geometry::Domain& domain, const geometry::Surface& s,
     for (int image = -images; image <= images; ++image) {
         const bool flipped = mirror && image % 2 != 0;
         for (int e = 0; e < int(s.size()); ++e) {
-            if (e == from && image == 0)
-                continue;
+            if (e == from && image == 0) continue;
             auto a = s.vertices[s.corners[e][0]], b = s.vertices[s.corners[e][1]];
-            if (flipped)
-                a.x = -a.x, b.x = -b.x; // the period is centred on x = 0
+            if (flipped) a.x = -a.x, b.x = -b.x; // the period is centred on x = 0
             a.x += image * domain.width_x(), b.x += image * domain.width_x();
             const double ex = b.x - a.x, ez = b.z - a.z, det = dx * ez - dz * ex;
-            if (det == 0)
-                continue;
+            if (det == 0) continue;
             const double ax = a.x - origin.x, az = a.z - origin.z;
             const double t = (ax * ez - az * ex) / det, u = (ax * dz - az * dx) / det;
-            if (t > 1e-9 && t < best && u >= 0 && u < 1)
-                best = t, hit = e;
+            if (t > 1e-9 && t < best && u >= 0 && u < 1) best = t, hit = e;
         }
     }
     return hit;

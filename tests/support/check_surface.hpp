@@ -36,15 +36,12 @@ inline bool consistent_chains(const Surface& s, const Domain& d) {
     const bool mirror = d.sides == geometry::Sides::mirror;
     for (int e = 0; e < n; ++e) {
         const Vec3 end = s.vertices[s.corners[e][1]], start = s.vertices[s.corners[e][0]];
-        if (std::fabs(end.x) > half || std::fabs(start.x) > half)
-            return false;
+        if (std::fabs(end.x) > half || std::fabs(start.x) > half) return false;
         const int f = s.next[e];
         if (f < 0) {
-            if (!mirror || std::fabs(end.x) != half)
-                return false;
+            if (!mirror || std::fabs(end.x) != half) return false;
         } else {
-            if (s.previous[f] != e || s.chain[f] != s.chain[e])
-                return false;
+            if (s.previous[f] != e || s.chain[f] != s.chain[e]) return false;
             const Vec3 begin = s.vertices[s.corners[f][0]];
             if (begin != end) { // only across a periodic side
                 if (mirror || std::fabs(end.x) != half || begin.x != -end.x || begin.z != end.z)
@@ -53,8 +50,7 @@ inline bool consistent_chains(const Surface& s, const Domain& d) {
                 return false;
             }
         }
-        if (s.previous[e] < 0 && (!mirror || std::fabs(start.x) != half))
-            return false;
+        if (s.previous[e] < 0 && (!mirror || std::fabs(start.x) != half)) return false;
     }
     return true;
 }
@@ -97,21 +93,18 @@ inline int loose_edges(const Surface& s, const Domain& d) {
     for (const auto& c : s.corners)
         for (int m = 0; m < 4; ++m) {
             const int a = name[c[m]], b = name[c[(m + 1) % 4]];
-            if (a == b)
-                continue;
+            if (a == b) continue;
             (a < b ? count[{a, b}].first : count[{b, a}].second) += 1;
         }
     int loose = 0;
     for (const auto& [edge, uses] : count) {
-        if (uses.first == 1 && uses.second == 1)
-            continue;
+        if (uses.first == 1 && uses.second == 1) continue;
         const Vec3 a = s.vertices[edge.first], b = s.vertices[edge.second];
         const bool on_x =
             std::fabs(std::fabs(a.x) - wx / 2) + std::fabs(std::fabs(b.x) - wx / 2) == 0;
         const bool on_y =
             std::fabs(std::fabs(a.y) - wy / 2) + std::fabs(std::fabs(b.y) - wy / 2) == 0;
-        if (mirror && uses.first + uses.second == 1 && (on_x || on_y))
-            continue;
+        if (mirror && uses.first + uses.second == 1 && (on_x || on_y)) continue;
         ++loose;
     }
     return loose;

@@ -14,13 +14,11 @@ namespace rille::tests {
 /// One map from column name to value per row.
 inline std::vector<std::map<std::string, double>> csv_table(const std::string& name) {
     std::ifstream file(std::string(RILLE_TESTS) + "/data/" + name);
-    if (!file)
-        throw std::runtime_error("no test data " + name);
+    if (!file) throw std::runtime_error("no test data " + name);
     std::vector<std::string> header;
     std::vector<std::map<std::string, double>> rows;
     for (std::string line; std::getline(file, line);) {
-        if (line.empty() || line[0] == '#')
-            continue;
+        if (line.empty() || line[0] == '#') continue;
         std::istringstream cells(line);
         std::vector<std::string> values;
         for (std::string cell; std::getline(cells, cell, ',');)

@@ -65,24 +65,20 @@ inline WalkResult forward_walk(const geometry::Domain& domain, const geometry::S
             Hit hit = caster.trace(p, cosine(random, {0, 0, -1}, 1), -1);
             int hits = 0, chosen = -1;
             while (hit.kind == Hit::Kind::surface) {
-                if (u(random) * ++hits < 1)
-                    chosen = bin[hit.element];
-                if (u(random) < sticking[hit.element])
-                    break;
+                if (u(random) * ++hits < 1) chosen = bin[hit.element];
+                if (u(random) < sticking[hit.element]) break;
                 const Vec3 d = cosine(random, surface.normal[hit.element], options.emission_power);
                 hit = caster.trace(hit.point, d, hit.element);
             }
             out.escaped += hit.kind == Hit::Kind::open;
             out.absorbed += hit.kind == Hit::Kind::surface;
             out.lost += hit.kind == Hit::Kind::lost;
-            if (chosen >= 0)
-                out.sum[chosen] += hits, out.squares[chosen] += double(hits) * hits;
+            if (chosen >= 0) out.sum[chosen] += hits, out.squares[chosen] += double(hits) * hits;
         }
     });
     std::vector<double> area(bins, 0), sum(bins, 0), squares(bins, 0);
     for (std::size_t e = 0; e < surface.size(); ++e)
-        if (bin[e] >= 0)
-            area[bin[e]] += surface.area[e];
+        if (bin[e] >= 0) area[bin[e]] += surface.area[e];
     WalkResult r;
     const double walkers = double(per_chunk) * chunks;
     for (const Chunk& c : chunk) {
@@ -104,8 +100,7 @@ inline WalkResult forward_walk(const geometry::Domain& domain, const geometry::S
 inline std::vector<int> bins_below(const geometry::Surface& s, double z_top, int bins) {
     double total = 0, along = 0;
     for (std::size_t e = 0; e < s.size(); ++e)
-        if (s.centre[e].z < z_top)
-            total += s.area[e];
+        if (s.centre[e].z < z_top) total += s.area[e];
     std::vector<int> bin(s.size(), -1);
     for (std::size_t e = 0; e < s.size(); ++e)
         if (s.centre[e].z < z_top) {

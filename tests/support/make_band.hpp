@@ -29,16 +29,14 @@ inline geometry::Band make_band(const geometry::Domain& domain,
         for (int j = 0; j < ny; ++j)
             for (int i = 0; i < nx; ++i) {
                 const double phi = distance(domain.node(i, j, k));
-                if (std::fabs(phi) > half_width * h)
-                    continue;
+                if (std::fabs(phi) > half_width * h) continue;
                 slot(i, j, k) = static_cast<int>(band.size());
                 band.cells.push_back({i, j, k});
                 band.phi.push_back(phi);
             }
     const bool mirror = domain.sides == geometry::Sides::mirror;
     const auto beyond = [&](int i, int n) {
-        if (i >= 0 && i < n)
-            return i;
+        if (i >= 0 && i < n) return i;
         return mirror ? (i < 0 ? 0 : n - 1) : (i + n) % n;
     };
     for (const auto& c : band.cells) {

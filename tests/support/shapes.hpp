@@ -41,7 +41,8 @@ inline Surface polyline(const Domain& domain, const std::vector<Vec3>& points, d
     s.vertices.push_back(points.front());
     for (std::size_t p = 1; p < points.size(); ++p) {
         const Vec3 from = points[p - 1], to = points[p];
-        const int pieces = std::max(1, static_cast<int>(std::ceil((to - from).length() / max_length - 1e-9)));
+        const int pieces =
+            std::max(1, static_cast<int>(std::ceil((to - from).length() / max_length - 1e-9)));
         for (int i = 1; i <= pieces; ++i) {
             s.vertices.push_back(i == pieces ? to : from + (to - from) * (double(i) / pieces));
             const int last = static_cast<int>(s.vertices.size()) - 1;
@@ -60,15 +61,17 @@ inline Surface polyline(const Domain& domain, const std::vector<Vec3>& points, d
 /// Vertical trench of the given width and depth in the middle of the period, top at z = 0.
 inline Surface trench(const Domain& domain, double width, double depth, double max_length) {
     const double side = 0.5 * domain.width_x(), w = 0.5 * width;
-    return polyline(domain, {{-side, 0, 0}, {-w, 0, 0}, {-w, 0, -depth}, {w, 0, -depth}, {w, 0, 0}, {side, 0, 0}},
-                    max_length);
+    return polyline(
+        domain,
+        {{-side, 0, 0}, {-w, 0, 0}, {-w, 0, -depth}, {w, 0, -depth}, {w, 0, 0}, {side, 0, 0}},
+        max_length);
 }
 
-/// Surface of revolution about the z axis with radius(r) profile points from the rim (z = 0) down to
-/// the axis, `around` quads per turn, open square of flat top around it (full symmetry).
+/// Surface of revolution about the z axis with radius(r) profile points from the rim (z = 0) down
+/// to the axis, `around` quads per turn, open square of flat top around it (full symmetry).
 /// profile: {r, z} pairs, first at z = 0, last at r = 0.
-inline Surface revolved_hole(const Domain& domain, const std::vector<std::array<double, 2>>& profile,
-                             int around) {
+inline Surface revolved_hole(const Domain& domain,
+                             const std::vector<std::array<double, 2>>& profile, int around) {
     Surface s;
     const double pi = 3.14159265358979323846, half = 0.5 * domain.width_x();
     const auto ring = [&](double r, double z, bool square) {

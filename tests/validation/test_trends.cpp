@@ -1,6 +1,6 @@
 // SPDX-License-Identifier: Apache-2.0
-#include "engine/run.hpp"
 #include "engine/metrics.hpp"
+#include "engine/run.hpp"
 #include "tests/support/trench_case.hpp"
 
 #include <catch2/catch.hpp>
@@ -34,8 +34,8 @@ geometry::Measured widening(const engine::Case& c, const engine::RunResult& outc
 }
 
 double floor_depth(const engine::Case& c, const engine::RunResult& outcome, int opening) {
-    const auto floor = geometry::floor_of(c.domain, outcome.last.surface,
-                                          engine::feature_sites(c)[opening]);
+    const auto floor =
+        geometry::floor_of(c.domain, outcome.last.surface, engine::feature_sites(c)[opening]);
     REQUIRE(floor);
     return -floor->centre.value;
 }
@@ -73,9 +73,9 @@ TEST_CASE("bow grows with the angular spread of the ions", "[validation][trends]
         if (degrees == 0)
             CHECK(std::fabs(width.value) < 0.1 * t.c.domain.spacing);
         else
-            CHECK(width.value > before + std::max(0.1 * t.c.domain.spacing,
-                                                  5 * engine::sampling_error(
-                                                          width, outcome.last.displacement)));
+            CHECK(width.value >
+                  before + std::max(0.1 * t.c.domain.spacing,
+                                    5 * engine::sampling_error(width, outcome.last.displacement)));
         before = width.value;
     }
 }
@@ -137,12 +137,10 @@ TEST_CASE("the narrower of two trenches lags when neutrals limit", "[validation]
     if (neutral_limited) {
         const int neutral = t.add_neutral("R", 100);
         t.chemistry(0).coverages = {"R"};
-        t.chemistry(0).processes = {
-            fluxes::Adsorption{neutral, 0, 0.5, 1, {}},
-            fluxes::IonEnhancedEtching{0, 1, {t.add_tally(flat_yield(4))}}};
+        t.chemistry(0).processes = {fluxes::Adsorption{neutral, 0, 0.5, 1, {}},
+                                    fluxes::IonEnhancedEtching{0, 1, {t.add_tally(flat_yield(4))}}};
     } else {
-        t.chemistry(0).processes = {
-            fluxes::PhysicalSputtering{{}, {t.add_tally(flat_yield(1))}}};
+        t.chemistry(0).processes = {fluxes::PhysicalSputtering{{}, {t.add_tally(flat_yield(1))}}};
     }
     t.add_step("main", 80);
     const auto outcome = run(t.c);
@@ -155,10 +153,9 @@ TEST_CASE("the narrower of two trenches lags when neutrals limit", "[validation]
         CHECK(std::fabs(narrow - wide) < 0.2);
 }
 
-// Oracle: a tapered mask that erodes at vertical rate m opens its bottom by m t / tan(angle) a side.
-// Source: geometry, derived here.
-// Tolerance: 15 % of the opening or half a cell a side (the scheme's smearing of a contact), and
-// monotone.
+// Oracle: a tapered mask that erodes at vertical rate m opens its bottom by m t / tan(angle) a
+// side. Source: geometry, derived here. Tolerance: 15 % of the opening or half a cell a side (the
+// scheme's smearing of a contact), and monotone.
 TEST_CASE("faster mask erosion opens the CD", "[validation][trends]") {
     double before = 0;
     for (const double yield : {0.0, 0.2, 0.5}) {
@@ -170,12 +167,11 @@ TEST_CASE("faster mask erosion opens the CD", "[validation][trends]") {
         if (yield > 0) etch_by_ions(t, 1, yield);
         t.add_step("main", 60);
         const auto outcome = run(t.c);
-        const auto cd = geometry::cd_at(t.c.domain, outcome.last.surface,
-                                        engine::feature_sites(t.c)[0], -1.0);
+        const auto cd =
+            geometry::cd_at(t.c.domain, outcome.last.surface, engine::feature_sites(t.c)[0], -1.0);
         REQUIRE(cd);
         const double opened = cd->value - 50;
-        const double expected =
-            2 * (yield * 60 / 50 * 60) / std::tan(80 * 3.14159265358979 / 180);
+        const double expected = 2 * (yield * 60 / 50 * 60) / std::tan(80 * 3.14159265358979 / 180);
         CAPTURE(yield, opened, expected);
         CHECK(opened == Approx(expected).epsilon(0.15).margin(2 * 0.5));
         CHECK(opened >= before - 0.05);
