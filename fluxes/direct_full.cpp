@@ -2,6 +2,7 @@
 #include "fluxes/arc_average.hpp"
 #include "fluxes/direct_ions.hpp"
 #include "fluxes/exchange.hpp"
+#include "fluxes/launch.hpp"
 #include "fluxes/sampling.hpp"
 
 #include <tbb/blocked_range.h>
@@ -88,7 +89,7 @@ private:
     /// One ray per direction.
     std::vector<Arrival> trace(int e, int ion) {
         const IonSource& source = tables_.ions()[ion];
-        const Vec3 own = surface_.normal[e], mean = normal_[e];
+        const Vec3 mean = normal_[e];
         const double flat = std::hypot(mean.x, mean.y);
         const double hx = flat > 1e-9 ? mean.x / flat : 1.0, hy = flat > 1e-9 ? mean.y / flat : 0.0;
         const double share = source.flux / (per_batch_ * batches);
@@ -99,11 +100,14 @@ private:
             for (int k = 0; k < per_batch_; ++k) {
                 const auto index = static_cast<std::uint32_t>(k);
                 const IonSample ion_sample = source.distribution.sample(points.four(index));
-                const Vec3 at = point_on(e, points.pair(index, 2));
+                // Spread over the element, so that the flux is its mean and not that of its centre.
+                const auto place = points.pair(index, 2);
+                const Launch at = launch_from_quad(surface_, e, place[0], place[1]);
                 const Vec3 from = -ion_sample.direction;
-                const double facing = from.dot(own);
-                const bool seen = facing > 0 ? caster_.trace(at, from, e).kind == Hit::Kind::open
-                                             : reached_from_behind(at, from);
+                const double facing = from.dot(at.normal);
+                const bool seen = facing > 0
+                                      ? caster_.trace(at.point, from, e).kind == Hit::Kind::open
+                                      : reached_from_behind(at.point, from);
                 if (!seen) continue;
                 if (facing > 0) gathered_.flux[ion][e] += share * facing / from.z;
                 arrivals.push_back(
@@ -113,18 +117,6 @@ private:
         return arrivals;
     }
 
-    /// Point spread evenly over the element (two triangles with the diagonal b-d), so that the flux
-    /// is the element's mean and not that of its centre.
-    Vec3 point_on(int e, const std::array<double, 2>& u) const {
-        const auto& corner = surface_.corners[e];
-        const Vec3 a = surface_.vertices[corner[0]], b = surface_.vertices[corner[1]];
-        const Vec3 c = surface_.vertices[corner[2]], d = surface_.vertices[corner[3]];
-        const double first = (b - a).cross(d - a).length(), second = (b - c).cross(d - c).length();
-        const double share = first / (first + second);
-        const bool low = u[0] < share || second == 0;
-        const double v = std::sqrt(low ? u[0] / share : (u[0] - share) / (1 - share));
-        return (low ? a : c) * (1 - v) + (b * (1 - u[1]) + d * u[1]) * v;
-    }
     /// A direction behind the element's own plane matters only for turned normals, next to a convex
     /// edge: an ion from there must get within a cell and a half of the element.
     bool reached_from_behind(const Vec3& at, const Vec3& from) const {

@@ -102,10 +102,10 @@ void Exchange::Tracing::extruded(int element) {
 /// Source: Veach & Guibas, Optimally combining sampling techniques (1995) [from memory].
 double Exchange::Tracing::sky_flux(int element, int batch, const std::optional<Aim>& aim) {
     const ScrambledPoints stream = points(element, batch);
-    const Vec3 normal = surface.normal[element];
     const int n = exchange.per_batch_;
-    const auto weight = [&](const Vec3& from, const Vec3& d) {
-        const double by_cosine = std::max(0.0, normal.dot(d)) / pi;
+    const auto weight = [&](const Launch& start, const Vec3& d) {
+        const Vec3& from = start.point;
+        const double by_cosine = std::max(0.0, start.normal.dot(d)) / pi;
         double by_aim = 0;
         if (aim && d.z > 0) {
             const double up = (aim->z - from.z) / d.z; // path length to the rectangle
@@ -118,20 +118,20 @@ double Exchange::Tracing::sky_flux(int element, int batch, const std::optional<A
     double flux = 0;
     for (int r = 0; r < n; ++r) {
         const auto u = stream.pair(r, 0), v = stream.pair(r, 1);
-        const Vec3 from = point_on_quad(surface, element, v[0], v[1]);
-        const Vec3 d = cosine_direction(normal, u[0], u[1]);
-        const Hit hit = caster.trace(from, d, element);
+        const Launch from = launch_from_quad(surface, element, v[0], v[1]);
+        const Vec3 d = cosine_direction(from.normal, u[0], u[1]);
+        const Hit hit = caster.trace(from.point, d, element);
         keep(hit, element, batch);
         if (hit.kind == Hit::Kind::open) flux += weight(from, d);
     }
     for (int r = 0; aim && r < n; ++r) {
         const auto u = stream.pair(r, 2), v = stream.pair(r, 3);
-        const Vec3 from = point_on_quad(surface, element, v[0], v[1]);
+        const Launch from = launch_from_quad(surface, element, v[0], v[1]);
         const Vec3 to(aim->x0 + u[0] * (aim->x1 - aim->x0), aim->y0 + u[1] * (aim->y1 - aim->y0),
                       aim->z);
-        const Vec3 d = (to - from).normalized();
-        if (d.z <= 0 || normal.dot(d) <= 0) continue;
-        if (caster.trace(from, d, element).kind == Hit::Kind::open) flux += weight(from, d);
+        const Vec3 d = (to - from.point).normalized();
+        if (d.z <= 0 || from.normal.dot(d) <= 0) continue;
+        if (caster.trace(from.point, d, element).kind == Hit::Kind::open) flux += weight(from, d);
     }
     sort(element, batch);
     return std::min(flux, 1.0);

@@ -1,23 +1,28 @@
 // SPDX-License-Identifier: Apache-2.0
 #include "fluxes/launch.hpp"
 
+#include "geometry/facets.hpp"
+
 #include <cmath>
 
 namespace rille::fluxes {
 
 using geometry::Vec3;
 
-geometry::Vec3 point_on_quad(const geometry::Surface& s, int element, double u, double v) {
-    const auto& corner = s.corners[element];
-    const Vec3 a = s.vertices[corner[0]], b = s.vertices[corner[1]];
-    const Vec3 c = s.vertices[corner[2]], d = s.vertices[corner[3]];
-    const double first = (b - a).cross(c - a).length(), second = (c - a).cross(d - a).length();
-    const double share = first / (first + second);
-    const bool in_first = u < share || !(second > 0);
-    const double w = in_first ? u / share : (u - share) / (1 - share);
-    const double root = std::sqrt(w); // even over the triangle a, p, q
-    const Vec3 p = in_first ? b : c, q = in_first ? c : d;
-    return a + (p - a) * (root * (1 - v)) + (q - a) * (root * v);
+Launch launch_from_quad(const geometry::Surface& s, int element, double u, double v) {
+    const geometry::Facet both[2] = {geometry::facet(s.vertices, s.corners[element], 0),
+                                     geometry::facet(s.vertices, s.corners[element], 1)};
+    const Vec3 cross[2] = {both[0].cross(), both[1].cross()};
+    const double size[2] = {cross[0].length(), cross[1].length()};
+    const double all = size[0] + size[1];
+    if (!(all > 0)) return {s.centre[element], s.normal[element]};
+    const double share = size[0] / all;
+    const int which = u < share || !(size[1] > 0) ? 0 : 1;
+    const double w = which == 0 ? u / share : (u - share) / (1 - share);
+    const double root = std::sqrt(w); // even over the triangle
+    const geometry::Facet& f = both[which];
+    return {f.a + (f.b - f.a) * (root * (1 - v)) + (f.c - f.a) * (root * v),
+            cross[which] / size[which]};
 }
 
 geometry::Vec3 cosine_direction(const geometry::Vec3& n, double u, double v) {

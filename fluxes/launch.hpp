@@ -3,12 +3,17 @@
 
 #include "geometry/surface.hpp"
 
-#include <array>
-
 namespace rille::fluxes {
 
-/// Point spread evenly over a quad or triangle {a, b, c, d} (d == c), u and v in [0, 1).
-geometry::Vec3 point_on_quad(const geometry::Surface&, int element, double u, double v);
+/// A place from which a ray leaves an element of a full surface.
+struct Launch {
+    geometry::Vec3 point;
+    geometry::Vec3 normal; ///< of the facet that the point lies on
+};
+
+/// Place spread evenly over the facets of an element, u and v in [0, 1). Of an element without area
+/// it is the centre.
+Launch launch_from_quad(const geometry::Surface&, int element, double u, double v);
 
 /// Direction by the cosine law about the unit vector `normal`; density cos / pi per solid angle.
 geometry::Vec3 cosine_direction(const geometry::Vec3& normal, double u, double v);

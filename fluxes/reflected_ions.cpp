@@ -4,6 +4,7 @@
 #include "fluxes/arc_average.hpp"
 #include "fluxes/ion_reflection.hpp"
 #include "fluxes/sampling.hpp"
+#include "geometry/facets.hpp"
 
 #include <tbb/parallel_for.h>
 
@@ -114,7 +115,8 @@ private:
                 weight = roulette_below;
             }
             const Vec3 out = reflected_direction(
-                law, hit.direction, mean, surface_.normal[hit.element], stream_key(key, hits, 11));
+                law, hit.direction, mean, geometry::normal_at(surface_, hit.element, hit.point),
+                stream_key(key, hits, 11));
             hit = caster_.trace(hit.point, out, hit.element);
         }
     }

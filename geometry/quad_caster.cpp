@@ -2,6 +2,7 @@
 #include "geometry/quad_caster.hpp"
 
 #include "geometry/check.hpp"
+#include "geometry/facets.hpp"
 
 #include <embree3/rtcore.h>
 #include <tbb/task_arena.h>
@@ -25,9 +26,11 @@ constexpr double beyond = 0.5;
 /// What the filter needs to know of the ray's start, in the frame of the present image.
 struct StartContext {
     RTCIntersectContext context; // must come first: Embree hands its address back
-    const Vec3* centre;          ///< of each quad
-    int own_quad;                ///< of the element the ray leaves; -1 after a fold and for none
-    Vec3 from_centre, from_normal;
+    const std::vector<Vec3>* vertices;
+    const std::vector<std::array<int, 4>>* quads;
+    int own_quad;  ///< of the element the ray leaves; -1 after a fold and for none
+    int own_facet; ///< likewise
+    Vec3 from_centre, from_normal; ///< of the facet
     float near; ///< hits before this ray parameter are at the start of the ray
 };
 
@@ -36,12 +39,10 @@ struct StartContext {
 struct QuadCaster::Scene {
     RTCDevice device = nullptr;
     RTCScene scene = nullptr;
-    std::vector<Vec3> vertices;            ///< until the tree is built
-    std::vector<std::array<int, 4>> quads; ///< likewise; the elements first, then their images
+    std::vector<Vec3> vertices;
+    std::vector<std::array<int, 4>> quads; ///< the elements first, then their images
     std::vector<int> source;               ///< element of each quad
     std::vector<std::array<signed char, 2>> image; ///< periods by which each quad is moved
-    std::vector<Vec3> centre;                      ///< of each quad
-    std::vector<Vec3> normal;                      ///< of each element
     Vec3 middle;                                   ///< subtracted from what Embree sees
 
     ~Scene() {
@@ -57,17 +58,20 @@ struct QuadCaster::Scene {
 
 namespace {
 
-/// Rejects the back of elements and what a ray cannot meet where it starts.
+/// Rejects the back of facets and what a ray cannot meet where it starts.
 void filter_start(const RTCFilterFunctionNArguments* args) {
     const auto* start = reinterpret_cast<const StartContext*>(args->context);
     const auto* ray = reinterpret_cast<const RTCRay*>(args->ray);
     const auto* hit = reinterpret_cast<const RTCHit*>(args->hit);
     const float along = hit->Ng_x * ray->dir_x + hit->Ng_y * ray->dir_y + hit->Ng_z * ray->dir_z;
     const int quad = static_cast<int>(hit->primID);
-    bool reject = along >= 0 || quad == start->own_quad;
-    // What lies behind the plane of the element cannot be in front of a ray that has just left it.
-    if (!reject && ray->tfar < start->near)
-        reject = (start->centre[quad] - start->from_centre).dot(start->from_normal) < 1e-9;
+    const int which = hit->u + hit->v > 1 ? 1 : 0; // how Embree numbers the halves of a quad
+    bool reject = along >= 0 || (quad == start->own_quad && which == start->own_facet);
+    // What lies behind the plane of the facet cannot be in front of a ray that has just left it.
+    if (!reject && ray->tfar < start->near) {
+        const Vec3 centre = facet(*start->vertices, (*start->quads)[quad], which).centre();
+        reject = (centre - start->from_centre).dot(start->from_normal) < 1e-9;
+    }
     if (reject) args->valid[0] = 0;
 }
 
@@ -106,15 +110,12 @@ void QuadCaster::Scene::add_image(const Domain& domain, const Surface& surface, 
         quads.push_back(quad);
         source.push_back(static_cast<int>(e));
         image.push_back({static_cast<signed char>(sx), static_cast<signed char>(sy)});
-        centre.push_back(moved(surface.centre[e]));
     }
 }
 
 void QuadCaster::Scene::add_images(const Domain& domain, const Surface& surface, double skirt) {
     vertices = surface.vertices;
     quads = surface.corners;
-    centre = surface.centre;
-    normal = surface.normal;
     for (std::size_t e = 0; e < surface.size(); ++e)
         source.push_back(static_cast<int>(e));
     image.assign(surface.size(), {0, 0});
@@ -149,8 +150,6 @@ void QuadCaster::Scene::build() {
     // the same.
     tbb::task_arena(1).execute([&] { rtcCommitScene(scene); });
     RILLE_CHECK(rtcGetDeviceError(device) == RTC_ERROR_NONE, "Embree cannot build its tree");
-    std::vector<Vec3>().swap(vertices);
-    std::vector<std::array<int, 4>>().swap(quads);
 }
 
 /// Quad first met within `reach`, -1 for none, and the distance t. The search begins 2 `slack`
@@ -297,20 +296,25 @@ Hit QuadCaster::finish(Ray& ray, Hit::Kind kind, int quad, double t) const {
 Hit QuadCaster::trace(const Vec3& origin, const Vec3& direction, int from_element) const {
     const Scene& scene = *scene_;
     Ray ray{origin, direction, 0, Vec3(0), Vec3(0)};
+    StartContext start;
+    rtcInitIntersectContext(&start.context);
+    start.context.filter = filter_start;
+    start.vertices = &scene.vertices;
+    start.quads = &scene.quads;
+    start.own_quad = from_element;
     if (from_element >= 0) {
-        ray.from_centre = scene.centre[from_element];
-        ray.from_normal = scene.normal[from_element];
+        const auto& quad = scene.quads[from_element];
+        start.own_facet = facet_at(scene.vertices, quad, origin);
+        const Facet own = facet(scene.vertices, quad, start.own_facet);
+        ray.from_centre = own.centre();
+        const Vec3 cross = own.cross();
+        ray.from_normal = cross / std::max(cross.length(), 1e-300);
     }
     const auto to_open = [&] {
         return finish(ray, Hit::Kind::open, -1,
                       std::max(0.0, (z_open_ - ray.origin.z) / ray.direction.z));
     };
     if (!enter(ray)) return direction.z > 0 ? to_open() : finish(ray, Hit::Kind::lost, -1, 0);
-    StartContext start;
-    rtcInitIntersectContext(&start.context);
-    start.context.filter = filter_start;
-    start.centre = scene.centre.data();
-    start.own_quad = from_element;
     for (int folds = 0; folds < most_folds; ++folds) {
         int axis = 0;
         const double side = way_to_side(ray, axis);
