@@ -1,6 +1,9 @@
 // SPDX-License-Identifier: Apache-2.0
 #include "fluxes/arc_average.hpp"
 
+#include <tbb/blocked_range.h>
+#include <tbb/parallel_for.h>
+
 #include <algorithm>
 #include <cmath>
 
@@ -118,8 +121,9 @@ void add_piece(const Surface& surface, const Piece& piece, double window,
     }
 }
 
-void add_around(const Surface& surface, const std::vector<std::vector<int>>& at_vertex, int e,
-                std::vector<ArcAverage::Part>& row) {
+/// The element and those that share a corner with it, twice over.
+std::vector<int> around(const Surface& surface, const std::vector<std::vector<int>>& at_vertex,
+                        int e) {
     std::vector<int> found = {e};
     std::size_t begin = 0;
     for (int ringed = 0; ringed < 2; ++ringed) {
@@ -132,11 +136,37 @@ void add_around(const Surface& surface, const std::vector<std::vector<int>>& at_
                         found.push_back(f);
         begin = end;
     }
-    double sum = 0;
-    for (int f : found)
-        sum += surface.area[f];
-    for (int f : found)
-        row.push_back({f, surface.area[f] / sum});
+    return found;
+}
+
+/// Weights a_f / max(S_e, S_f), S the area around: times a_e they are the same both ways, so that
+/// averages keep sums over the surface. The rest stays with the element.
+void add_rows(const Surface& surface, std::vector<std::vector<ArcAverage::Part>>& rows) {
+    std::vector<std::vector<int>> at_vertex(surface.vertices.size());
+    const int count = static_cast<int>(surface.size());
+    for (int e = 0; e < count; ++e)
+        for (int i = 0; i < 4; ++i)
+            if (i < 3 || surface.corners[e][3] != surface.corners[e][2])
+                at_vertex[surface.corners[e][i]].push_back(e);
+    std::vector<std::vector<int>> near(count);
+    std::vector<double> area(count, 0.0);
+    tbb::parallel_for(tbb::blocked_range<int>(0, count, 64), [&](const auto& range) {
+        for (int e = range.begin(); e != range.end(); ++e) {
+            near[e] = around(surface, at_vertex, e);
+            for (int f : near[e])
+                area[e] += surface.area[f];
+        }
+    });
+    for (int e = 0; e < count; ++e) {
+        rows[e].push_back({e, 1.0});
+        for (std::size_t i = 1; i < near[e].size(); ++i) {
+            const int f = near[e][i];
+            const double widest = std::max(area[e], area[f]);
+            const double weight = widest > 0 ? surface.area[f] / widest : 0.0;
+            rows[e].push_back({f, weight});
+            rows[e][0].weight -= weight;
+        }
+    }
 }
 
 } // namespace
@@ -148,13 +178,7 @@ ArcAverage arc_average(const Domain& domain, const Surface& surface) {
         for (const Piece& piece : smooth_pieces(surface))
             add_piece(surface, piece, window_cells * domain.spacing, rows);
     } else {
-        std::vector<std::vector<int>> at_vertex(surface.vertices.size());
-        for (int e = 0; e < count; ++e)
-            for (int i = 0; i < 4; ++i)
-                if (i < 3 || surface.corners[e][3] != surface.corners[e][2])
-                    at_vertex[surface.corners[e][i]].push_back(e);
-        for (int e = 0; e < count; ++e)
-            add_around(surface, at_vertex, e, rows[e]);
+        add_rows(surface, rows);
     }
     ArcAverage average;
     average.first.push_back(0);

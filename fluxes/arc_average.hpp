@@ -12,7 +12,7 @@ namespace rille::fluxes {
 ///
 /// extruded: box of five cells of arc inside a smooth piece, reflected at the piece's ends, so that
 /// a constant stays constant and the sum of value times length is kept to round-off. full: elements
-/// that share a corner, twice over, within the corner angle.
+/// that share a corner, twice over, within the corner angle; sums of value times area are kept.
 struct ArcAverage {
     struct Part {
         int element;

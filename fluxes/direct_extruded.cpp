@@ -92,6 +92,8 @@ private:
         const std::size_t count = surface_.size(), angles = tables_.angles().size();
         const int ion = tables_.tallies()[m].ion;
         gathered_.row.push_back(averaged_rows(m, ion));
+        gathered_.row_of.push_back(m);
+        gathered_.factor.push_back(1.0);
         gathered_.tally.emplace_back(count, 0.0);
         over_elements([&](int e) {
             float* row = &gathered_.row[m][e * angles];

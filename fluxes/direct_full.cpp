@@ -34,18 +34,64 @@ public:
         return value_[i] + (x - i) * (value_[i + 1] - value_[i]);
     }
 
+    bool operator==(const AngleTable& other) const { return value_ == other.value_; }
+
 private:
     static constexpr int cells = 2048;
     std::vector<double> value_;
 };
 
-/// An ion that arrives: where it comes from and what it weighs.
+/// An energy law over the energies of one distribution: linear in a table where they are spread.
+class EnergyTable {
+public:
+    EnergyTable(const EnergyLaw& law, const IonDistribution& distribution) : law_(law) {
+        low_ = high_ = distribution.sample({0.5, 0.5, 0.5, 0.5}).energy_ev;
+        const ScrambledPoints points(stream);
+        for (std::uint32_t i = 0; i < 256; ++i) {
+            const double energy = distribution.sample(points.four(i)).energy_ev;
+            low_ = std::min(low_, energy);
+            high_ = std::max(high_, energy);
+        }
+        for (int i = 0; high_ > low_ && i <= cells; ++i)
+            value_.push_back(energy_yield(law, low_ + (high_ - low_) * i / cells));
+    }
+    double operator()(double energy) const {
+        if (value_.empty() || energy < low_ || energy >= high_) return energy_yield(law_, energy);
+        const double x = (energy - low_) / (high_ - low_) * cells;
+        const int i = std::min(static_cast<int>(x), cells - 1);
+        return value_[i] + (x - i) * (value_[i + 1] - value_[i]);
+    }
+
+private:
+    static constexpr int cells = 1024;
+    EnergyLaw law_;
+    double low_, high_;
+    std::vector<double> value_;
+};
+
+/// Ions that arrive: where they come from and what they weigh.
 struct Arrival {
     double up = 0;     ///< component of the reverse direction along +z
     double along = 0;  ///< and along the horizontal part of the element's normal
-    double weight = 0; ///< flux / (directions * up)
+    double weight = 0; ///< share of the flux / up
     double energy = 0;
     int batch = 0;
+};
+
+/// Species that arrive alike (the mass of an ion does not matter in a collisionless sheath) share
+/// directions and what these see.
+struct Group {
+    IonDistribution distribution;
+    std::vector<double> content;
+    std::vector<int> ions;
+};
+
+/// A yield apart from its scale, for one group: tallies are multiples of kernels.
+struct Kernel {
+    int group;
+    std::vector<double> content;
+    EnergyTable energy;
+    int angle; ///< index of the table of the angle law
 };
 
 class FullGather {
@@ -56,62 +102,102 @@ public:
         : domain_(domain), surface_(surface), caster_(caster), tables_(tables), options_(options),
           average_(arc_average(domain, surface)), normal_(averaged_normals(surface, average_)),
           per_batch_((std::max(options.directions, 1) + batches - 1) / batches) {
-        for (const Tally& tally : tables.tallies())
-            angle_factor_.emplace_back(tally.yield.angle);
         for (double a : tables.angles()) {
             cosine_.push_back(std::cos(a));
             sine_.push_back(std::sin(a));
         }
+        for (std::size_t s = 0; s < tables.ions().size(); ++s)
+            join_group(static_cast<int>(s));
+        for (const Tally& tally : tables.tallies())
+            join_kernel(tally);
     }
 
     DirectIons::Gathered run() {
-        const std::size_t count = surface_.size(), tallies = tables_.tallies().size();
-        gathered_.flux.assign(tables_.ions().size(), std::vector<double>(count, 0.0));
-        gathered_.row.assign(tallies, std::vector<float>(count * cosine_.size(), 0.0F));
-        gathered_.tally.assign(tallies, std::vector<double>(count, 0.0));
-        gathered_.batch.assign(tallies, std::vector<double>(count * batches, 0.0));
-        tbb::parallel_for(tbb::blocked_range<int>(0, static_cast<int>(count), 16),
-                          [&](const tbb::blocked_range<int>& range) {
-                              for (int e = range.begin(); e != range.end(); ++e)
-                                  for (std::size_t s = 0; s < tables_.ions().size(); ++s)
-                                      gather(e, static_cast<int>(s));
-                          });
+        const std::size_t count = surface_.size(), angles = cosine_.size();
+        std::vector<std::vector<double>> group_flux(groups_.size(), std::vector<double>(count));
+        raw_row_.assign(kernels_.size(), std::vector<float>(count * angles));
+        raw_batch_.assign(kernels_.size(), std::vector<double>(count * batches));
+        over_elements([&](int e) {
+            for (std::size_t g = 0; g < groups_.size(); ++g)
+                tabulate(static_cast<int>(g), e, trace(static_cast<int>(g), e, group_flux[g][e]));
+        });
+        gathered_.row.assign(kernels_.size(), std::vector<float>(count * angles));
+        gathered_.tally.assign(tables_.tallies().size(), std::vector<double>(count));
+        gathered_.batch.assign(tables_.tallies().size(), std::vector<double>(count * batches));
+        over_elements([&](int e) { average(e); });
+        for (std::size_t s = 0; s < group_of_.size(); ++s) {
+            gathered_.flux.push_back(group_flux[group_of_[s]]);
+            for (double& flux : gathered_.flux.back())
+                flux *= tables_.ions()[s].flux;
+        }
         return std::move(gathered_);
     }
 
 private:
-    void gather(int e, int ion) {
-        const std::vector<Arrival> arrivals = trace(e, ion);
-        for (std::size_t m = 0; m < tables_.tallies().size(); ++m)
-            if (tables_.tallies()[m].ion == ion) tabulate(static_cast<int>(m), e, arrivals);
+    template <class Work> void over_elements(const Work& work) const {
+        tbb::parallel_for(tbb::blocked_range<int>(0, static_cast<int>(surface_.size()), 16),
+                          [&](const tbb::blocked_range<int>& range) {
+                              for (int e = range.begin(); e != range.end(); ++e)
+                                  work(e);
+                          });
     }
 
-    /// One ray per direction.
-    std::vector<Arrival> trace(int e, int ion) {
-        const IonSource& source = tables_.ions()[ion];
+    void join_group(int ion) {
+        const IonDistribution& distribution = tables_.ions()[ion].distribution;
+        std::vector<double> content;
+        distribution.append_content(content);
+        const auto same = std::find_if(groups_.begin(), groups_.end(),
+                                       [&](const Group& g) { return g.content == content; });
+        group_of_.push_back(static_cast<int>(same - groups_.begin()));
+        if (same == groups_.end()) groups_.push_back({distribution, std::move(content), {}});
+        groups_[group_of_.back()].ions.push_back(ion);
+    }
+
+    void join_kernel(const Tally& tally) {
+        const int group = group_of_[tally.ion];
+        std::vector<double> content;
+        append_content(tally.yield, content);
+        const auto same = std::find_if(kernels_.begin(), kernels_.end(), [&](const Kernel& k) {
+            return k.group == group && k.content == content;
+        });
+        gathered_.row_of.push_back(static_cast<int>(same - kernels_.begin()));
+        gathered_.factor.push_back(tables_.ions()[tally.ion].flux * tally.yield.scale);
+        if (same != kernels_.end()) return;
+        const AngleTable table(tally.yield.angle);
+        const auto known = std::find(angle_factor_.begin(), angle_factor_.end(), table);
+        const int angle = static_cast<int>(known - angle_factor_.begin());
+        if (known == angle_factor_.end()) angle_factor_.push_back(table);
+        kernels_.push_back(
+            {group, std::move(content),
+             EnergyTable(tally.yield.energy, groups_[group].distribution), angle});
+    }
+
+    /// One ray per direction; adds up the flux, in units of the open flux.
+    std::vector<Arrival> trace(int group, int e, double& flux) const {
         const Vec3 mean = normal_[e];
         const double flat = std::hypot(mean.x, mean.y);
         const double hx = flat > 1e-9 ? mean.x / flat : 1.0, hy = flat > 1e-9 ? mean.y / flat : 0.0;
-        const double share = source.flux / (per_batch_ * batches);
+        const double share = 1.0 / (per_batch_ * batches);
         std::vector<Arrival> arrivals;
+        arrivals.reserve(std::size_t(per_batch_) * batches);
         for (int b = 0; b < batches; ++b) {
             const ScrambledPoints points(
-                stream_key(options_.seed, stream, options_.refresh, e, ion, b));
+                stream_key(options_.seed, stream, options_.refresh, e, group, b));
             for (int k = 0; k < per_batch_; ++k) {
                 const auto index = static_cast<std::uint32_t>(k);
-                const IonSample ion_sample = source.distribution.sample(points.four(index));
+                const IonSample ion = groups_[group].distribution.sample(points.four(index));
                 // Spread over the element, so that the flux is its mean and not that of its centre.
                 const auto place = points.pair(index, 2);
                 const Launch at = launch_from_quad(surface_, e, place[0], place[1]);
-                const Vec3 from = -ion_sample.direction;
+                const Vec3 from = -ion.direction;
                 const double facing = from.dot(at.normal);
                 const bool seen = facing > 0
                                       ? caster_.trace(at.point, from, e).kind == Hit::Kind::open
                                       : reached_from_behind(at.point, from);
                 if (!seen) continue;
-                if (facing > 0) gathered_.flux[ion][e] += share * facing / from.z;
+                if (facing > 0) flux += share * facing / from.z;
                 arrivals.push_back(
-                    {from.z, from.x * hx + from.y * hy, share / from.z, ion_sample.energy_ev, b});
+                    {from.z, from.x * hx + from.y * hy, share / from.z, ion.energy_ev, b});
             }
         }
         return arrivals;
@@ -137,28 +223,75 @@ private:
         at += low;
     }
 
-    void tabulate(int m, int e, const std::vector<Arrival>& arrivals) {
-        const YieldFunction& yield = tables_.tallies()[m].yield;
-        const AngleTable& factor = angle_factor_[m];
-        const std::size_t angles = cosine_.size();
-        std::vector<double> row(angles, 0.0);
-        const double own_c = std::clamp(normal_[e].z, -1.0, 1.0);
-        const double own_s = std::sqrt(1 - own_c * own_c);
-        double* batch = &gathered_.batch[m][std::size_t(e) * batches];
+    double own_angle(int e) const { return std::acos(std::clamp(normal_[e].z, -1.0, 1.0)); }
+
+    /// Raw rows of the kernels of a group, and what the batches say at the element's own normal.
+    void tabulate(int group, int e, const std::vector<Arrival>& arrivals) {
+        const std::size_t angles = cosine_.size(), laws = angle_factor_.size();
+        const double own_c = std::cos(own_angle(e)), own_s = std::sin(own_angle(e));
+        std::vector<double> received(laws * angles), own(laws);
+        std::vector<double> rows(kernels_.size() * angles, 0.0);
         for (const Arrival& a : arrivals) {
-            const double strength = a.weight * yield.scale * energy_yield(yield.energy, a.energy);
-            if (strength == 0) continue;
-            const double own = own_c * a.up + own_s * a.along;
-            if (own > 0) batch[a.batch] += batches * strength * own * factor(own);
+            const double own_cosine = std::max(0.0, own_c * a.up + own_s * a.along);
+            for (std::size_t l = 0; l < laws; ++l)
+                own[l] = own_cosine * angle_factor_[l](own_cosine);
             for (std::size_t k = 0; k < angles; ++k) {
                 const double c = cosine_[k] * a.up + sine_[k] * a.along;
-                if (c > 0) row[k] += strength * c * factor(c);
+                for (std::size_t l = 0; l < laws; ++l)
+                    received[l * angles + k] = c > 0 ? c * angle_factor_[l](c) : 0.0;
+            }
+            for (std::size_t n = 0; n < kernels_.size(); ++n) {
+                if (kernels_[n].group != group) continue;
+                const double strength = a.weight * kernels_[n].energy(a.energy);
+                raw_batch_[n][std::size_t(e) * batches + a.batch] +=
+                    batches * strength * own[kernels_[n].angle];
+                const double* from = received.data() + kernels_[n].angle * angles;
+                double* row = rows.data() + n * angles;
+                for (std::size_t k = 0; k < angles; ++k)
+                    row[k] += strength * from[k];
             }
         }
-        for (int b = 0; b < batches; ++b)
-            gathered_.tally[m][e] += batch[b] / batches;
-        for (std::size_t k = 0; k < angles; ++k)
-            gathered_.row[m][std::size_t(e) * angles + k] = static_cast<float>(row[k]);
+        for (std::size_t n = 0; n < kernels_.size(); ++n)
+            if (kernels_[n].group == group)
+                std::copy_n(rows.data() + n * angles, angles,
+                            raw_row_[n].data() + std::size_t(e) * angles);
+    }
+
+    /// Averages over the surroundings: a wall takes so little of the beam that the noise of one
+    /// element's directions would roughen it.
+    void average(int e) {
+        const std::size_t angles = cosine_.size();
+        std::vector<double> row(angles), own(kernels_.size());
+        std::vector<std::array<double, batches>> batch(kernels_.size());
+        for (std::size_t n = 0; n < kernels_.size(); ++n) {
+            std::fill(row.begin(), row.end(), 0.0);
+            batch[n].fill(0.0);
+            for (int i = average_.first[e]; i < average_.first[e + 1]; ++i) {
+                const auto [f, weight] = average_.parts[i];
+                const float* from = raw_row_[n].data() + std::size_t(f) * angles;
+                for (std::size_t k = 0; k < angles; ++k)
+                    row[k] += weight * from[k];
+                for (int b = 0; b < batches; ++b)
+                    batch[n][b] += weight * raw_batch_[n][std::size_t(f) * batches + b];
+            }
+            float* to = gathered_.row[n].data() + std::size_t(e) * angles;
+            for (std::size_t k = 0; k < angles; ++k)
+                to[k] = static_cast<float>(row[k]);
+            own[n] = on_row(tables_.angles(), to, own_angle(e));
+            // Batches spread about the same mean.
+            double mean = 0;
+            for (const double value : batch[n])
+                mean += value / batches;
+            for (double& value : batch[n])
+                value = mean > 0 ? value * own[n] / mean : own[n];
+        }
+        for (std::size_t m = 0; m < gathered_.row_of.size(); ++m) {
+            const int n = gathered_.row_of[m];
+            gathered_.tally[m][e] = gathered_.factor[m] * own[n];
+            for (int b = 0; b < batches; ++b)
+                gathered_.batch[m][std::size_t(e) * batches + b] =
+                    gathered_.factor[m] * batch[n][b];
+        }
     }
 
     const geometry::Domain& domain_;
@@ -169,8 +302,13 @@ private:
     ArcAverage average_;
     std::vector<Vec3> normal_;
     int per_batch_;
+    std::vector<Group> groups_;
+    std::vector<int> group_of_; ///< of each ion
+    std::vector<Kernel> kernels_;
     std::vector<AngleTable> angle_factor_;
     std::vector<double> cosine_, sine_;
+    std::vector<std::vector<float>> raw_row_;    ///< [kernel][e * angles + k]
+    std::vector<std::vector<double>> raw_batch_; ///< [kernel][e * 8 + b]
     DirectIons::Gathered gathered_;
 };
 

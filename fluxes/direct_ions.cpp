@@ -35,7 +35,9 @@ double DirectIons::tally(int m, int element) const {
 
 double DirectIons::tally_at(int m, int element, double angle) const {
     const std::vector<double>& angles = tables_->angles();
-    return on_row(angles, gathered_.row[m].data() + std::size_t(element) * angles.size(), angle);
+    const float* row =
+        gathered_.row[gathered_.row_of[m]].data() + std::size_t(element) * angles.size();
+    return gathered_.factor[m] * on_row(angles, row, angle);
 }
 
 double DirectIons::tally_batch(int b, int m, int element) const {

@@ -24,7 +24,9 @@ namespace rille::fluxes {
 class DirectIons {
 public:
     struct Options {
-        int directions = 256; ///< full only, per ion species; rounded up to a multiple of 8
+        /// full only, per element and per group of species that arrive alike; rounded up to a
+        /// multiple of 8. The average over about 25 elements makes the most of them.
+        int directions = 64;
         std::uint64_t seed = 1;
         std::uint64_t refresh = 0;
     };
@@ -48,7 +50,9 @@ public:
 
     /// What one of the two ways of gathering leaves behind. Vectors over elements.
     struct Gathered {
-        std::vector<std::vector<float>> row;    ///< [tally][e * angles + k] [nm^-2 s^-1]
+        std::vector<std::vector<float>> row;    ///< [row][e * angles + k] [nm^-2 s^-1] / factor
+        std::vector<int> row_of;                ///< row of each tally
+        std::vector<double> factor;             ///< of each tally, by which its row is multiplied
         std::vector<std::vector<double>> flux;  ///< [ion][e]
         std::vector<std::vector<double>> tally; ///< [tally][e]
         std::vector<std::vector<double>> batch; ///< [tally][e * 8 + b]; extruded: empty

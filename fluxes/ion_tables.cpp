@@ -75,6 +75,15 @@ struct AppendYield {
     void put(std::initializer_list<double> numbers) const { to.insert(to.end(), numbers); }
 };
 
+} // namespace
+
+void append_content(const YieldFunction& yield, std::vector<double>& numbers) {
+    std::visit(AppendYield{numbers}, yield.energy);
+    std::visit(AppendYield{numbers}, yield.angle);
+}
+
+namespace {
+
 std::vector<double> content_of(geometry::Symmetry symmetry, const std::vector<IonSource>& ions,
                                const std::vector<Tally>& tallies) {
     std::vector<double> content = {symmetry == geometry::Symmetry::extruded ? 0.0 : 1.0,
@@ -86,8 +95,7 @@ std::vector<double> content_of(geometry::Symmetry symmetry, const std::vector<Io
     for (const Tally& tally : tallies) {
         content.push_back(tally.ion);
         content.push_back(tally.yield.scale);
-        std::visit(AppendYield{content}, tally.yield.energy);
-        std::visit(AppendYield{content}, tally.yield.angle);
+        append_content(tally.yield, content);
     }
     return content;
 }

@@ -10,6 +10,9 @@
 
 namespace rille::fluxes {
 
+/// Appends the numbers that define a yield, apart from its scale; equal numbers, equal laws.
+void append_content(const YieldFunction&, std::vector<double>& numbers);
+
 /// What depends on the plasma and the mechanism alone, not on the surface: built once per plasma
 /// state and shared by the DirectIons of every refresh.
 ///
