@@ -13,7 +13,11 @@ Launch launch_from_quad(const geometry::Surface& s, int element, double u, doubl
     const geometry::Facet both[2] = {geometry::facet(s.vertices, s.corners[element], 0),
                                      geometry::facet(s.vertices, s.corners[element], 1)};
     const Vec3 cross[2] = {both[0].cross(), both[1].cross()};
-    const double size[2] = {cross[0].length(), cross[1].length()};
+    // A facet folded over its neighbour looks into the solid: nothing starts there.
+    const auto facing = [&](const Vec3& c) {
+        return c.dot(s.normal[element]) > 0 ? c.length() : 0.0;
+    };
+    const double size[2] = {facing(cross[0]), facing(cross[1])};
     const double all = size[0] + size[1];
     if (!(all > 0)) return {s.centre[element], s.normal[element]};
     const double share = size[0] / all;

@@ -43,6 +43,7 @@ struct QuadCaster::Scene {
     std::vector<std::array<int, 4>> quads; ///< the elements first, then their images
     std::vector<int> source;               ///< element of each quad
     std::vector<std::array<signed char, 2>> image; ///< periods by which each quad is moved
+    std::vector<Vec3> out; ///< of each vertex of the period: area-weighted sum of normals
     Vec3 middle;                                   ///< subtracted from what Embree sees
 
     ~Scene() {
@@ -119,6 +120,10 @@ void QuadCaster::Scene::add_images(const Domain& domain, const Surface& surface,
     for (std::size_t e = 0; e < surface.size(); ++e)
         source.push_back(static_cast<int>(e));
     image.assign(surface.size(), {0, 0});
+    out.assign(vertices.size(), Vec3(0, 0, 0));
+    for (std::size_t e = 0; e < surface.size(); ++e)
+        for (const int v : surface.corners[e])
+            out[v] += surface.normal[e] * surface.area[e];
     for (int sy = -1; sy <= 1; ++sy)
         for (int sx = -1; sx <= 1; ++sx)
             if (sx != 0 || sy != 0) add_image(domain, surface, sx, sy, skirt);
@@ -193,6 +198,7 @@ QuadCaster::QuadCaster(const Domain& domain, const Surface& surface, double z_op
     const double extent = std::max({domain.width_x(), domain.width_y(), high - low});
     slack_ = 8 * std::numeric_limits<float>::epsilon() * extent;
     z_top_ = high + 4 * slack_;
+    z_bottom_ = low - 4 * slack_;
     scene_->middle = Vec3(0, 0, 0.5 * (low + high));
     scene_->add_images(domain, surface, domain.spacing);
     scene_->build();
@@ -293,7 +299,22 @@ Hit QuadCaster::finish(Ray& ray, Hit::Kind kind, int quad, double t) const {
     return hit;
 }
 
+/// Elements squeezed next to a sharp edge may lie a little below the surface, and a ray that starts
+/// there into the solid meets nothing. It is sent again from above the surface at its start.
 Hit QuadCaster::trace(const Vec3& origin, const Vec3& direction, int from_element) const {
+    Hit hit = follow(origin, direction, from_element);
+    if (from_element < 0) return hit;
+    for (const double lift : {0.25, 0.5, 1.0}) {
+        if (hit.kind != Hit::Kind::lost) break;
+        Vec3 out(0, 0, 0);
+        for (const int v : scene_->quads[from_element])
+            out += scene_->out[v];
+        hit = follow(origin + out.normalized() * (lift * domain_.spacing), direction, -1);
+    }
+    return hit;
+}
+
+Hit QuadCaster::follow(const Vec3& origin, const Vec3& direction, int from_element) const {
     const Scene& scene = *scene_;
     Ray ray{origin, direction, 0, Vec3(0), Vec3(0)};
     StartContext start;
@@ -320,6 +341,7 @@ Hit QuadCaster::trace(const Vec3& origin, const Vec3& direction, int from_elemen
         const double side = way_to_side(ray, axis);
         const double top =
             ray.direction.z > 0 ? (z_top_ - ray.origin.z) / ray.direction.z : infinite;
+        if (ray.direction.z <= 0 && ray.origin.z < z_bottom_) break; // below everything
         start.from_centre = ray.from_centre;
         start.from_normal = ray.from_normal;
         start.near = from_element < 0 ? -1.0f : static_cast<float>(6 * slack_ - ray.length);

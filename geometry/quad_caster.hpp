@@ -28,6 +28,7 @@ private:
     struct Scene; // what Embree holds, and the quads with their images beyond the sides
     struct Ray;
 
+    Hit follow(const Vec3& origin, const Vec3& direction, int from_element) const;
     void fold(Ray&) const;
     bool enter(Ray&) const;
     double way_to_side(const Ray&, int& axis) const;
@@ -37,7 +38,7 @@ private:
 
     Domain domain_;
     double z_open_ = 0;
-    double z_top_ = 0;
+    double z_top_ = 0, z_bottom_ = 0; ///< no element lies above or below
     double slack_ = 0; ///< [nm] what single precision may do to a distance
     std::unique_ptr<Scene> scene_;
 };
