@@ -12,8 +12,8 @@
 namespace rille::engine {
 namespace {
 
-/// The state of the front as files and metrics want it.
-SurfaceState snapshot(const Case& the_case, Simulation& simulation) {
+/// The state of the front as files and metrics want it, with the arrivals if they can be had.
+SurfaceState snapshot(const Case& the_case, Simulation& simulation, bool solved = true) {
     SurfaceState state;
     state.time_s = simulation.time_s();
     const std::size_t step = std::min(simulation.step_index(), the_case.steps.size() - 1);
@@ -21,7 +21,8 @@ SurfaceState snapshot(const Case& the_case, Simulation& simulation) {
     state.surface = simulation.surface();
     state.grown = simulation.films();
     state.displacement = simulation.displacement_errors();
-    fill_state(state, the_case, simulation.arrivals());
+    if (solved) fill_state(state, the_case, simulation.arrivals());
+    else state.material = simulation.materials();
     return state;
 }
 
@@ -58,8 +59,8 @@ void note_health(const Case& the_case, const Simulation& simulation, RunRecord& 
     record.redistance_shift = health.largest_redistance_shift;
     const Timings& t = simulation.timings();
     record.timings = {{"contour", t.extract},
-                      {"ray caster", t.cast},
-                      {"ions, neutrals, kinetics", t.fluxes},
+                      {"ray_caster", t.cast},
+                      {"fluxes", t.fluxes},
                       {"advance", t.advance},
                       {"carry", t.carry}};
     for (const auto& part : simulation.isolated_parts())
@@ -128,14 +129,13 @@ std::vector<std::string> charging_warnings(const Case& the_case) {
     return warnings;
 }
 
-RunResult run_case(const Case& the_case, RunObserver& observer, const std::atomic<bool>& stop) {
-    using Clock = std::chrono::steady_clock;
-    const auto started = Clock::now();
-    RunResult result;
-    Simulation simulation(the_case);
-    const double expected = expected_duration(the_case);
-    const double interval =
-        the_case.frame_interval_s > 0 ? the_case.frame_interval_s : expected / 10;
+namespace {
+
+/// Steps to the end of the recipe, telling the observer; returns early when `stop` is set.
+void follow_recipe(const Case& the_case, Simulation& simulation, RunObserver& observer,
+                   const std::atomic<bool>& stop, std::vector<HistoryRow>& history) {
+    const double interval = the_case.frame_interval_s > 0 ? the_case.frame_interval_s
+                                                          : expected_duration(the_case) / 10;
     observer.framed(snapshot(the_case, simulation));
     double next_frame = interval;
     while (!simulation.finished() && !stop) {
@@ -143,21 +143,34 @@ RunResult run_case(const Case& the_case, RunObserver& observer, const std::atomi
         const double start_s =
             simulation.outcomes().empty() ? 0.0 : simulation.outcomes().back().end_s;
         simulation.step(next_frame);
-        result.history.push_back(
-            history_row(the_case, simulation, the_case.steps[index].name, start_s));
+        history.push_back(history_row(the_case, simulation, the_case.steps[index].name, start_s));
         const double of_step = simulation.step_index() > index ? 1.0 : simulation.step_progress();
-        observer.progressed(simulation, result.history.back(),
-                            (index + of_step) / the_case.steps.size());
+        observer.progressed(simulation, history.back(), (index + of_step) / the_case.steps.size());
         if (simulation.time_s() >= next_frame * (1 - 1e-12)) {
             if (!simulation.finished()) observer.framed(snapshot(the_case, simulation));
             next_frame += interval;
         }
     }
-    result.last = snapshot(the_case, simulation);
+}
+
+} // namespace
+
+RunResult run_case(const Case& the_case, RunObserver& observer, const std::atomic<bool>& stop) {
+    using Clock = std::chrono::steady_clock;
+    const auto started = Clock::now();
+    RunResult result;
     RunRecord& record = result.record;
-    record.status = !simulation.finished()     ? "interrupted"
-                    : simulation.all_reached() ? "done"
-                                               : "not cleared";
+    Simulation simulation(the_case);
+    try {
+        follow_recipe(the_case, simulation, observer, stop, result.history);
+        record.status = !simulation.finished()     ? "interrupted"
+                        : simulation.all_reached() ? "done"
+                                                   : "not cleared";
+    } catch (const NumericsError& error) {
+        record.status = "failed";
+        record.failure = error.what();
+    }
+    result.last = snapshot(the_case, simulation, record.failure.empty());
     note_health(the_case, simulation, record);
     record.wall_seconds = std::chrono::duration<double>(Clock::now() - started).count();
     const auto front = std::make_shared<geometry::Front>(simulation.front());

@@ -69,6 +69,7 @@ json record_json(const Case& c, const RunRecord& record, const std::vector<std::
     return {{"format", 1},
             {"title", c.title},
             {"status", record.status},
+            {"failure", record.failure},
             {"program",
              {{"name", "rille"},
               {"version", version()},

@@ -27,6 +27,7 @@ struct PhaseTime {
 /// empty.
 struct RunRecord {
     std::string status = "done"; ///< "done", "not cleared", "interrupted", "failed"
+    std::string failure;         ///< why the run could not go on; empty unless "failed"
     std::string command;
     int threads = 0;
     std::string started; ///< UTC, 2026-01-31T12:00:00Z

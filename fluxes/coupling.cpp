@@ -15,7 +15,10 @@ namespace rille::fluxes {
 namespace {
 
 using Vector = std::vector<double>;
-constexpr int max_iterations = 60;
+constexpr int max_newton_iterations = 12; ///< 4 to 8 are the rule
+constexpr int max_relaxation_steps = 400;
+constexpr double sticking_tolerance = 1e-6;
+constexpr double flux_tolerance = 1e-8;
 
 double norm(const Vector& v) {
     double sum = 0;
@@ -63,10 +66,23 @@ public:
         return out;
     }
 
-    /// Solves (I - A (I - loss)) step = defect.
-    Vector newton_step(int batch, const Vector& loss, const Vector& defect,
-                       double tolerance) const {
-        Vector step = defect, emitted(unknowns()), arrived(unknowns());
+    /// s and loss of the sticking (1 - share) before + share s.
+    void blend(const Vector& before, double share, Vector& s, Vector& loss) const {
+        for (double& part : loss)
+            part *= share;
+        for (std::size_t e = 0; e < n_; ++e)
+            for (std::size_t k = 0; k < species_; ++k) {
+                const std::size_t i = k * n_ + e;
+                s[i] = (1 - share) * before[i] + share * s[i];
+                loss[(e * species_ + k) * species_ + k] += (1 - share) * before[i];
+            }
+    }
+
+    /// Solves (I - A (I - loss)) step = defect; whether that went well.
+    bool newton_step(int batch, const Vector& loss, const Vector& defect, double tolerance,
+                     Vector& step) const {
+        step = defect;
+        Vector emitted(unknowns()), arrived(unknowns());
         const std::size_t K = species_;
         const auto matrix = [&](const double* in, double* out) {
             for (std::size_t e = 0; e < n_; ++e)
@@ -80,8 +96,7 @@ public:
             for (std::size_t i = 0; i < arrived.size(); ++i)
                 out[i] = in[i] - arrived[i];
         };
-        solve_linear(matrix, defect, step, tolerance);
-        return step;
+        return solve_linear(matrix, defect, step, tolerance).converged;
     }
 
     double open(std::size_t k) const { return open_[k]; }
@@ -115,14 +130,24 @@ private:
 };
 
 struct State {
-    Vector x, s, loss, defect;
+    Vector x, kinetic; ///< kinetic: the sticking that the kinetics answers
+    Vector s;          ///< the sticking that the neutrals meet
+    Vector loss, defect;
     double size = 0; ///< of the defect
 };
 
-State evaluate(const Problem& p, Vector x) {
+/// Neutrals meet (1 - share) before + share (what the kinetics answers).
+struct Blend {
+    const Vector& before;
+    double share;
+};
+
+State evaluate(const Problem& p, Vector x, const Blend& blend) {
     State state;
     state.x = std::move(x);
-    p.evaluate(-1, state.x, state.s, &state.loss);
+    p.evaluate(-1, state.x, state.kinetic, &state.loss);
+    state.s = state.kinetic;
+    if (blend.share < 1) p.blend(blend.before, blend.share, state.s, state.loss);
     state.defect = p.defect(-1, state.x, state.s);
     state.size = norm(state.defect);
     return state;
@@ -130,13 +155,13 @@ State evaluate(const Problem& p, Vector x) {
 
 /// The longest of step, step / 2, step / 4 ... that brings the defect down; the shortest tried if
 /// none does (a kink of the kinetics can raise the defect for one iteration).
-State backtrack(const Problem& p, const State& from, const Vector& step) {
+State backtrack(const Problem& p, const State& from, const Vector& step, const Blend& blend) {
     State next;
     for (double share = 1; share > 0.02; share *= 0.5) {
         Vector x = from.x;
         for (std::size_t i = 0; i < x.size(); ++i)
             x[i] = std::max(x[i] + share * step[i], 0.0);
-        next = evaluate(p, std::move(x));
+        next = evaluate(p, std::move(x), blend);
         if (next.size <= from.size) break;
     }
     return next;
@@ -157,6 +182,70 @@ std::vector<Vector> by_species(const Problem& p, const Vector& x) {
     return flux;
 }
 
+struct Newton {
+    bool converged = false;
+    int iterations = 0;
+    double change = 1; ///< largest of a sticking in the last iteration
+};
+
+/// Newton's method from `state`, which is left where it ended.
+Newton newton(const Problem& p, State& state, const Blend& blend, double scale, int most) {
+    Newton done;
+    while (done.iterations < most) {
+        RILLE_CHECK(std::isfinite(state.size), "kinetics gave a sticking that is not a number");
+        // Nothing is gained by solving a step better than Newton's method squares its error.
+        const double tolerance = std::clamp(1e-2 * state.size / scale, 1e-9, 1e-3);
+        Vector step;
+        if (!p.newton_step(-1, state.loss, state.defect, tolerance, step)) return done;
+        State next = backtrack(p, state, step, blend);
+        done.change = largest_change(state.s, next.s);
+        state = std::move(next);
+        ++done.iterations;
+        done.converged = done.change < sticking_tolerance && state.size < flux_tolerance * scale;
+        if (done.converged) break;
+    }
+    return done;
+}
+
+/// Follows the relaxation of the sticking towards what the kinetics answers, d s / d tau =
+/// kinetics(arrivals(s)) - s, by implicit Euler steps until it is at rest; the steps grow while
+/// Newton's method converges in them. A short step is always solvable: the share of the kinetics
+/// in it is small, and with fixed sticking the equations are linear. Returns the distance from
+/// rest.
+double relax(const Problem& p, State& state, double scale, int& iterations) {
+    Vector before = state.kinetic;
+    double pace = 0.25, longest = 1e4, rest = 1;
+    for (int step = 0; step < max_relaxation_steps && rest > sticking_tolerance; ++step) {
+        const Blend blend{before, pace / (1 + pace)};
+        State next = evaluate(p, state.x, blend);
+        const Newton done = newton(p, next, blend, scale, max_newton_iterations);
+        iterations += done.iterations;
+        if (!done.converged) {
+            longest = 0.7 * pace;
+            pace *= 0.25;
+            continue;
+        }
+        rest = largest_change(next.kinetic, next.s);
+        before = next.s;
+        state = std::move(next);
+        longest *= 1.05;
+        pace = std::min(done.iterations <= 4 ? 2 * pace : pace, longest);
+    }
+    return rest;
+}
+
+/// Arrivals at the sticking of a surface that nothing has reached yet.
+Vector arrivals_at_bare(const Problem& p) {
+    Vector x(p.unknowns(), 0.0), s, loss;
+    p.evaluate(-1, x, s, nullptr);
+    const Vector bare = s;
+    loss.assign(x.size() * p.species(), 0.0);
+    p.blend(bare, 0, s, loss);
+    Vector step;
+    if (!p.newton_step(-1, loss, p.defect(-1, x, s), 1e-6, step)) step.assign(x.size(), 1.0);
+    return step;
+}
+
 } // namespace
 
 CoupledArrivals solve_coupled(const Exchange& exchange, const std::vector<double>& open,
@@ -164,7 +253,7 @@ CoupledArrivals solve_coupled(const Exchange& exchange, const std::vector<double
                               const std::vector<std::vector<double>>& guess) {
     const Problem p(exchange, open, sticking);
     const std::size_t n = p.elements();
-    Vector x(p.unknowns(), 1.0);
+    Vector x = arrivals_at_bare(p);
     for (std::size_t k = 0; k < guess.size() && k < p.species(); ++k)
         for (std::size_t e = 0; e < n && guess[k].size() == n && open[k] > 0; ++e)
             x[k * n + e] = guess[k][e] / open[k];
@@ -172,28 +261,34 @@ CoupledArrivals solve_coupled(const Exchange& exchange, const std::vector<double
     scale = std::max(scale, 1e-300);
 
     CoupledArrivals result;
-    State state = evaluate(p, std::move(x));
-    for (;;) {
-        RILLE_CHECK(std::isfinite(state.size), "kinetics gave a sticking that is not a number");
-        // Nothing is gained by solving a step better than Newton's method squares its error.
-        const double tolerance = std::clamp(1e-2 * state.size / scale, 1e-9, 1e-3);
-        const Vector step = p.newton_step(-1, state.loss, state.defect, tolerance);
-        State next = backtrack(p, state, step);
-        result.residual = largest_change(state.s, next.s);
-        state = std::move(next);
-        ++result.iterations;
-        if (result.residual < 1e-6 && state.size < 1e-8 * scale) break;
-        if (result.iterations == max_iterations)
-            throw NumericsError(
-                "transport and kinetics of neutrals did not converge: sticking still changes by " +
-                std::to_string(result.residual));
+    const Vector none;
+    const Blend kinetics_alone{none, 1};
+    const State start = evaluate(p, std::move(x), kinetics_alone);
+    State state = start;
+    const Newton done = newton(p, state, kinetics_alone, scale, max_newton_iterations);
+    result.iterations = done.iterations;
+    result.residual = done.change;
+    if (!done.converged) {
+        state = start;
+        result.relaxed = true;
+        result.residual = relax(p, state, scale, result.iterations);
+        if (result.residual > sticking_tolerance)
+            throw NumericsError("transport and kinetics of neutrals did not converge: sticking is "
+                                "still off by " +
+                                std::to_string(result.residual));
     }
     result.flux = by_species(p, state.x);
     result.batch_flux.resize(batches);
     tbb::parallel_for(0, batches, [&](int b) {
         Vector s;
         p.evaluate(b, state.x, s, nullptr);
-        const Vector step = p.newton_step(b, state.loss, p.defect(b, state.x, s), 1e-4);
+        const Vector defect = p.defect(b, state.x, s);
+        Vector step, loss = state.loss;
+        if (!p.newton_step(b, loss, defect, 1e-4, step)) {
+            // Next to a change between two steady states: the answer at fixed sticking stands in.
+            p.blend(s, 0, s, loss);
+            RILLE_CHECK(p.newton_step(b, loss, defect, 1e-4, step), "transport of one batch");
+        }
         Vector moved = state.x;
         for (std::size_t i = 0; i < moved.size(); ++i)
             moved[i] = std::max(moved[i] + step[i], 0.0);

@@ -22,14 +22,22 @@ struct CoupledArrivals {
     /// Newton step from `flux`.
     std::vector<std::vector<std::vector<double>>> batch_flux;
     int iterations = 0;
-    double residual = 0; ///< largest change of a sticking probability in the last iteration
+    double residual = 0;  ///< largest change of a sticking in the last iteration, or distance from
+                          ///< what the kinetics answers if `relaxed`
+    bool relaxed = false; ///< whether Newton's method alone did not get there
 };
 
-/// Solves arrival_k = open_k d + A (1 - s_k(arrivals)) arrival_k for all species k together by
-/// Newton's method with backtracking, the sticking linearised at every element in all species,
-/// until every sticking probability changes by less than 1e-6 and the relative residual is below
-/// 1e-8. `open`: flux of every species in the open. `guess` ([species][element]) may be empty.
-/// Throws NumericsError if it does not converge.
+/// Solves arrival_k = open_k d + A (1 - s_k(arrivals)) arrival_k for all species k together, to
+/// 1e-6 in every sticking probability and 1e-8 in the arrivals (relative residual, at a sticking
+/// within 1e-6 of what the kinetics answers: a kink of the kinetics passes, too).
+///
+/// Where a film takes up more of its neutral than the bare surface does, elements starve each other
+/// and several steady states can exist. The one taken is the one next to the start: Newton's method
+/// with backtracking from the previous arrivals `guess` ([species][element]; empty: the arrivals at
+/// a surface that nothing has reached yet), and, where that does not converge, the state in which
+/// the sticking of the start comes to rest when it relaxes in time towards what the kinetics
+/// answers. `open`: flux of every species in the open.
+/// Throws NumericsError if the relaxation does not come to rest.
 CoupledArrivals solve_coupled(const Exchange&, const std::vector<double>& open,
                               const StickingOf& sticking,
                               const std::vector<std::vector<double>>& guess);

@@ -223,7 +223,7 @@ std::vector<double> Exchange::solve(const std::vector<double>& sticking, int bat
     std::vector<double> rhs = direct(batch);
     for (std::size_t e = 0; e < n; ++e)
         if (!open_[e]) x[e] = rhs[e] = 0;
-    const int used = solve_linear(
+    const LinearSolution solved = solve_linear(
         [&](const double* in, double* out) {
             for (std::size_t e = 0; e < n; ++e)
                 emitted[e] = (1 - sticking[e]) * in[e];
@@ -232,7 +232,8 @@ std::vector<double> Exchange::solve(const std::vector<double>& sticking, int bat
                 out[e] = in[e] - out[e];
         },
         rhs, x, 1e-10);
-    if (iterations) *iterations += used;
+    if (!solved.converged) throw NumericsError("the neutral transport equations did not converge");
+    if (iterations) *iterations += solved.iterations;
     for (double& value : x)
         value = std::max(value, 0.0);
     return x;

@@ -71,8 +71,8 @@ struct generic_product_impl<rille::fluxes::Product, Rhs, SparseShape, DenseShape
 
 namespace rille::fluxes {
 
-int solve_linear(const LinearOperator& apply, const std::vector<double>& rhs,
-                 std::vector<double>& x, double tolerance) {
+LinearSolution solve_linear(const LinearOperator& apply, const std::vector<double>& rhs,
+                            std::vector<double>& x, double tolerance) {
     const auto n = static_cast<Eigen::Index>(rhs.size());
     const Product matrix(apply, n);
     Eigen::BiCGSTAB<Product, Eigen::IdentityPreconditioner> solver(matrix);
@@ -81,6 +81,7 @@ int solve_linear(const LinearOperator& apply, const std::vector<double>& rhs,
     const Eigen::Map<const Eigen::VectorXd> b(rhs.data(), n);
     Eigen::Map<Eigen::VectorXd> solution(x.data(), n);
     int iterations = 0;
+    double before = HUGE_VAL;
     // The recursive residual drifts from the true one: start again from what is reached.
     for (int attempt = 0; attempt < 5; ++attempt) {
         solution = solver.solveWithGuess(b, solution.eval()).eval();
@@ -88,9 +89,11 @@ int solve_linear(const LinearOperator& apply, const std::vector<double>& rhs,
         Eigen::VectorXd residual(n);
         apply(x.data(), residual.data());
         residual -= b;
-        if (residual.norm() <= 2 * tolerance * b.norm()) return iterations;
+        if (residual.norm() <= 2 * tolerance * b.norm()) return {iterations, true};
+        if (!(residual.norm() < 0.5 * before)) break;
+        before = residual.norm();
     }
-    throw NumericsError("the neutral transport equations did not converge");
+    return {iterations, false};
 }
 
 } // namespace rille::fluxes

@@ -24,7 +24,7 @@ out = sys.argv[1]
 record = json.load(open(out + "/run.json"))
 assert record["status"] == "interrupted", record["status"]
 json.load(open(out + "/metrics.json"))
-xml.dom.minidom.parse(out + "/picture.svg")
+xml.dom.minidom.parse(out + "/profile.svg")
 xml.dom.minidom.parse(out + "/front.pvd")
 assert len(open(out + "/history.csv").read().splitlines()) >= 2
 P
