@@ -4,6 +4,7 @@
 #include "engine/metrics.hpp"
 #include "engine/sources.hpp"
 #include "fluxes/surface_chemistry.hpp"
+#include "geometry/between_centres.hpp"
 #include "geometry/check.hpp"
 #include "geometry/nearest.hpp"
 #include "geometry/ray_caster.hpp"
@@ -190,17 +191,25 @@ void Simulation::average_rates(fluxes::SurfaceStep& now, const fluxes::SurfaceSt
     if (later.rates.angles.size() != angles) return;
     for (std::size_t e = 0; e < surface_.size(); ++e) {
         const Vec3 foot = surface_.centre[e] - surface_.normal[e] * predicted.report.moved[e];
-        const int there = nearest(foot);
-        if (there < 0) continue;
+        const auto there =
+            geometry::between_centres(case_.domain, predicted.surface, nearest(foot), foot);
+        if (there.element < 0) continue;
         for (int r = now.rates.first_row[e]; r < now.rates.first_row[e + 1]; ++r) {
-            const int other = later.rates.row(there, now.rates.material[r]);
+            const int other = later.rates.row(there.element, now.rates.material[r]);
             if (other < 0) continue;
-            for (std::size_t k = 0; k < angles; ++k)
-                now.rates.table[r * angles + k] =
-                    0.5 * (now.rates.table[r * angles + k] + later.rates.table[other * angles + k]);
+            const int beside = there.partner < 0
+                                   ? -1
+                                   : later.rates.row(there.partner, now.rates.material[r]);
+            const double share = beside < 0 ? 0 : there.share;
+            const double* near = &later.rates.table[other * angles];
+            const double* next = share > 0 ? &later.rates.table[beside * angles] : near;
+            for (std::size_t k = 0; k < angles; ++k) {
+                double& rate = now.rates.table[r * angles + k];
+                rate = 0.5 * (rate + near[k] + share * (next[k] - near[k]));
+            }
         }
         for (std::size_t b = 0; b < now.rate_batch.size(); ++b)
-            now.rate_batch[b][e] = 0.5 * (now.rate_batch[b][e] + later.rate_batch[b][there]);
+            now.rate_batch[b][e] = 0.5 * (now.rate_batch[b][e] + later.rate_batch[b][there.element]);
     }
 }
 

@@ -133,10 +133,23 @@ void IonTables::place_angles(geometry::Symmetry symmetry) {
             if (!known) grazing.push_back({at, spread});
         }
     }
-    const double from = extruded ? -pi : 0.0;
+    // Ions without a preferred side: angles without one, so that mirror images stay so.
+    const bool even =
+        extruded && std::all_of(ions_.begin(), ions_.end(), [](const IonSource& ion) {
+            return std::fabs(ion.distribution.mean_rad()) < 1e-9;
+        });
+    const double from = extruded && !even ? -pi : 0.0;
     const std::size_t most = extruded ? 240 : 64;
     for (double coarsen = 1;; coarsen *= 1.1) {
-        angles_ = march(from, pi, grazing, coarsen);
+        std::vector<double> angles = march(from, pi, grazing, coarsen);
+        if (even) {
+            angles_.clear();
+            for (auto a = angles.rbegin(); *a > 0; ++a)
+                angles_.push_back(-*a);
+            angles_.insert(angles_.end(), angles.begin(), angles.end());
+        } else {
+            angles_ = std::move(angles);
+        }
         if (angles_.size() <= most) break;
     }
 }

@@ -3,6 +3,7 @@
 
 #include "geometry/band.hpp"
 #include "geometry/band_topology.hpp"
+#include "geometry/between_centres.hpp"
 #include "geometry/check.hpp"
 #include "geometry/closest_element.hpp"
 #include "geometry/hamiltonian.hpp"
@@ -34,6 +35,7 @@ struct LayeredCell {
     unsigned unseen = 0;  ///< sides behind an interface that the front runs along
     unsigned beside = 0;  ///< sides whose neighbour is nearer to a resting wall than to this front
     Layers layers;
+    BetweenCentres place;
 };
 
 struct Speed {
@@ -46,7 +48,7 @@ class Advance {
 public:
     Advance(Front& front, const Surface& surface, const NormalRates& rates, const Stack& stack,
             GrownFilms& films, const std::vector<int>& growth_film, const AdvanceLimits& limits)
-        : front_(front), band_(front.band()), surface_(surface), tables_(rates), films_(films),
+        : front_(front), band_(front.band()), surface_(surface), rates_(rates), tables_(rates), films_(films),
           growth_film_(growth_film), limits_(limits), finder_(band_, rates, tables_, stack, films),
           extruded_(band_.domain.extruded()), h_(band_.domain.spacing) {
         report_.moved.assign(surface.size(), 0.0);
@@ -58,13 +60,15 @@ private:
     void refresh();
     void classify_cells(const ClosestElements&);
     void classify_elements();
+    BetweenCentres place_of(std::size_t c, const ClosestElements&) const;
     unsigned resting_sides(std::size_t c) const;
     Slopes special_slopes(const double* phi, const LayeredCell&) const;
     Slopes slopes(const double* phi, std::size_t c, unsigned unseen = 0) const {
         return extruded_ ? slopes_2d(band_, phi, c, 1 / h_, unseen)
                          : slopes_3d(band_, phi, c, 1 / h_, unseen);
     }
-    double change(const Slopes&, int row, Speed&) const;
+    double change(const Slopes&, const RowPair&, Speed&) const;
+    void blend(RowPair&, const BetweenCentres&) const;
     double layered_change(const Slopes&, const Layers&, double dt) const;
     Speed first_stage();
     void find_layers(LayeredCell&, Speed&);
@@ -76,6 +80,7 @@ private:
     Front& front_;
     Band& band_;
     const Surface& surface_;
+    const NormalRates& rates_;
     RateTables tables_;
     GrownFilms& films_;
     const std::vector<int>& growth_film_;
@@ -85,7 +90,8 @@ private:
     double h_;
     AdvanceReport report_;
     double moved_since_refresh_ = 0; ///< [cells]
-    std::vector<int> element_, row_;
+    std::vector<int> element_;
+    std::vector<RowPair> row_;
     std::vector<double> slope_, next_; ///< dphi/dt at the first stage; phi after it
     std::vector<LayeredCell> layered_;
     std::vector<int> layered_elements_;
@@ -116,7 +122,7 @@ void Advance::refresh() {
 void Advance::classify_cells(const ClosestElements& closest) {
     const double reach = (refresh_move + 2 * layer_reach + 0.5) * h_;
     element_ = closest.element;
-    row_.assign(band_.size(), -1);
+    row_.assign(band_.size(), {});
     for_ranges(band_.size(), [&](std::size_t begin, std::size_t end) {
         for (std::size_t c = begin; c < end; ++c) {
             const int e = element_[c];
@@ -126,14 +132,15 @@ void Advance::classify_cells(const ClosestElements& closest) {
             const double z = (cell.k + 0.5) * h_, z_foot = closest.foot[c].z;
             const double middle = 0.5 * (z + z_foot), spread = 0.5 * std::fabs(z - z_foot);
             if (finder_.near(e, middle, reach + spread) || resting_sides(c))
-                row_[c] = layered_row;
+                row_[c].row = layered_row;
             else
-                row_[c] = finder_.row_below(e, {closest.foot[c], -surface_.normal[e], false});
+                row_[c].row = finder_.row_below(e, {closest.foot[c], -surface_.normal[e], false});
+            blend(row_[c], place_of(c, closest));
         }
     });
     layered_.clear();
     for (std::size_t c = 0; c < band_.size(); ++c)
-        if (row_[c] == layered_row) {
+        if (row_[c].row == layered_row) {
             layered_.emplace_back();
             layered_.back().cell = static_cast<int>(c);
             const Band::Cell& cell = band_.cells[c];
@@ -141,7 +148,21 @@ void Advance::classify_cells(const ClosestElements& closest) {
                                            closest.foot[c], surface_.normal[element_[c]], h_);
             layered_.back().phi0 = band_.phi[c];
             layered_.back().resting = resting_sides(c);
+            layered_.back().place = place_of(c, closest);
         }
+}
+
+/// Where on the surface, as it was when the rates were found, the foot of a cell lies.
+BetweenCentres Advance::place_of(std::size_t c, const ClosestElements& closest) const {
+    return between_centres(band_.domain, surface_, closest.element[c], closest.foot[c]);
+}
+
+/// Takes in the row that the neighbour has for the same material.
+void Advance::blend(RowPair& rows, const BetweenCentres& place) const {
+    if (rows.row < 0 || place.partner < 0)
+        return;
+    rows.other = rates_.row(place.partner, rates_.material[rows.row]);
+    rows.share = rows.other < 0 ? 0 : place.share;
 }
 
 /// Sides where the front of cell c meets one that turns by more than 45 degrees and rests, or
@@ -185,7 +206,7 @@ void Advance::classify_elements() {
 
 /// dphi/dt = R(n) |grad phi| + sum of a (slope+ - slope-) / 2: the solid (phi < 0) recedes at R.
 /// Where R is the same for all normals Godunov's flux needs no dissipation.
-double Advance::change(const Slopes& s, int row, Speed& speed) const {
+double Advance::change(const Slopes& s, const RowPair& row, Speed& speed) const {
     if (tables_.constant(row)) {
         speed.rate = tables_.rate(row, 0);
         const double steep = upwind_steepness(s, speed.rate > 0, speed.waves);
@@ -211,7 +232,7 @@ double Advance::layered_change(const Slopes& s, const Layers& layers, double dt)
     double sum = 0;
     for (int k = 0; k < layers.count; ++k) {
         Speed speed;
-        if (share[k] > 0 && layers.row[k] >= 0)
+        if (share[k] > 0 && layers.row[k].row >= 0)
             sum += share[k] * change(s, layers.row[k], speed);
     }
     return sum;
@@ -237,7 +258,7 @@ Speed Advance::first_stage() {
     most.waves = largest_of_ranges(band_.size(), [&](std::size_t begin, std::size_t end) {
         double waves = 0, fastest = 0;
         for (std::size_t c = begin; c < end; ++c) {
-            const int row = row_[c];
+            const RowPair& row = row_[c];
             slope_[c] = 0;
             if (!tables_.moves(row))
                 continue;
@@ -283,7 +304,8 @@ void Advance::find_layers(LayeredCell& at, Speed& most) {
     finder_.for_cell(c, phi, length(), e, foot, layer_reach * h_, at.layers);
     for (int k = 0; k < at.layers.count; ++k) {
         Speed speed;
-        if (at.layers.row[k] >= 0)
+        blend(at.layers.row[k], at.place);
+        if (at.layers.row[k].row >= 0)
             change(s, at.layers.row[k], speed);
         most.waves = std::max(most.waves, speed.waves);
         if (std::fabs(phi[c]) < h_)
@@ -315,7 +337,7 @@ void Advance::step(double dt) {
     const double* next = next_.data();
     for_ranges(band_.size(), [&](std::size_t begin, std::size_t end) {
         for (std::size_t c = begin; c < end; ++c) {
-            const int row = row_[c];
+            const RowPair& row = row_[c];
             if (!tables_.moves(row))
                 continue;
             Speed speed;

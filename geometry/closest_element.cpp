@@ -160,7 +160,16 @@ void Search::improve(std::size_t c, const std::vector<Candidate>& old, Candidate
         for (int h = home_first_[at]; h < home_first_[at + 1]; ++h)
             offer(p, home_element_[h], best);
     };
+    // Along the chain: of two elements that share the nearest vertex a neighbour may know one only.
+    const auto joined = [&](int e) {
+        if (e < 0 || !domain_.extruded())
+            return;
+        for (const int n : {surface_.previous[e], surface_.next[e]})
+            if (n >= 0)
+                offer(p, n, best);
+    };
     homes(c);
+    joined(best.element);
     for (const int n : band_.neighbour[c]) {
         if (n < 0 || n == static_cast<int>(c))
             continue;
@@ -168,6 +177,7 @@ void Search::improve(std::size_t c, const std::vector<Candidate>& old, Candidate
         if (e >= 0 && std::find(seen.begin(), seen.begin() + count, e) == seen.begin() + count) {
             seen[count++] = e;
             offer(p, e, best);
+            joined(e);
         }
         homes(n);
     }

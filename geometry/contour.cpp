@@ -186,23 +186,36 @@ void merge_slivers(ContourChain& chain, double shortest) {
         const Vec3 a = at(n - 1), b = at(n + 1), along = b - a;
         return std::fabs(along.cross(at(n) - a).y) / std::max(along.length(), 1e-300);
     };
-    for (int n = 0; n + (chain.closed ? 0 : 1) < static_cast<int>(points.size());) {
-        const int size = static_cast<int>(points.size());
-        const bool short_one = size > 3 && (at(n + 1) - at(n)).length() < shortest;
-        const bool first = short_one && removable(n), second = short_one && removable(n + 1);
-        if (!first && !second) {
-            ++n;
-            continue;
+    const double same = 1e-6 * shortest; // decisions must not hang on the direction of the walk
+    std::vector<double> lengths;
+    const auto measure = [&] {
+        lengths.clear();
+        for (int n = 0; n < static_cast<int>(points.size()) - (chain.closed ? 0 : 1); ++n)
+            lengths.push_back((at(n + 1) - at(n)).length());
+    };
+    measure();
+    while (points.size() > 3) {
+        const int segments = static_cast<int>(lengths.size());
+        int least = -1;
+        double length = shortest;
+        for (int n = 0; n < segments; ++n) {
+            const double l = lengths[n];
+            if (l < length - (least < 0 ? 0 : same) && (removable(n) || removable(n + 1))) {
+                least = n;
+                length = l;
+            }
         }
-        const int next = (n + 1) % size;
-        const int gone = first && (!second || cost(n) <= cost(next)) ? n : next;
-        if (gone == 0 && chain.closed && size > 1) { // keep the seam at a remaining point
-            points.erase(points.begin());
-            n = 0;
+        if (least < 0) return;
+        const int next = (least + 1) % static_cast<int>(points.size());
+        const bool first = removable(least), second = removable(next);
+        const double gain = first && second ? cost(next) - cost(least) : first ? 1 : -1;
+        if (first && second && std::fabs(gain) < same) {
+            points[least].p = 0.5 * (at(least) + at(least + 1));
+            points.erase(points.begin() + next);
         } else {
-            points.erase(points.begin() + gone);
-            n = std::max(0, n - 1);
+            points.erase(points.begin() + (gain > 0 ? least : next));
         }
+        measure();
     }
 }
 

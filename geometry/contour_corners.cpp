@@ -13,6 +13,7 @@ constexpr double window = 2.1;  ///< [cells] length of the fitted pieces
 constexpr double reach = 6.5;   ///< [cells] of contour needed on either side
 constexpr double spacing = 2.3; ///< [cells] least arc between two corners
 constexpr double threshold = pi / 6;
+constexpr double same_arc = 1e-9; ///< [cells] a point at the corner belongs to neither side
 
 /// Closer to a corner than this [cells] an edge of the grid may end nearer to the other face than
 /// to the one it crosses (bisector of the corner), so that phi along it bends.
@@ -126,7 +127,7 @@ Line fit_side(const Padded& c, const RebuiltCorner& corner, int direction, doubl
             const double arc = direction * (c.s[n] - s),
                          distance = (c.p[n] - corner.p).length() / h;
             if (arc > limit || arc > far + 1.5) break;
-            if (distance < skip || distance > far) continue;
+            if (arc < same_arc || distance < skip || distance > far) continue;
             used.push_back(c.p[n]);
             mean += c.p[n];
         }

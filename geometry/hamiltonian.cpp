@@ -99,6 +99,32 @@ WaveSpeed over_box(const RateTables& tables, int row, bool extruded, const Box& 
                 tables.wave_speed(row, full_low, negative));
 }
 
+std::array<double, 3> of_row(const RateTables& tables, int row, bool extruded, const Slopes& s,
+                             const Tilt& mean) {
+    if (row < 0)
+        return {0, 0, 0};
+    double low[3], high[3];
+    for (int a = 0; a < 3; ++a) {
+        low[a] = least_magnitude(s.minus[a], s.plus[a]);
+        high[a] = most_magnitude(s.minus[a], s.plus[a]);
+    }
+    const auto share = [](double one, double other_square) {
+        const double square = one * one + other_square;
+        return square > 0 ? one / std::sqrt(square) : 0;
+    };
+    if (tables.constant(row)) {
+        const double rate = std::fabs(tables.rate(row, 0));
+        return {rate * share(high[0], low[1] * low[1] + low[2] * low[2]),
+                rate * share(high[1], low[0] * low[0] + low[2] * low[2]),
+                rate * share(high[2], low[0] * low[0] + low[1] * low[1])};
+    }
+    const WaveSpeed w = over_box(tables, row, extruded, box_of(extruded, s), mean);
+    if (extruded)
+        return {w.horizontal, 0, w.vertical};
+    return {w.horizontal * share(high[0], low[1] * low[1]),
+            w.horizontal * share(high[1], low[0] * low[0]), w.vertical};
+}
+
 } // namespace
 
 Tilt tilt_of(bool extruded, double gx, double gy, double gz) {
@@ -191,30 +217,15 @@ double upwind_steepness(const Slopes& s, bool recedes, double& waves) {
     return length;
 }
 
-std::array<double, 3> dissipation(const RateTables& tables, int row, bool extruded, const Slopes& s,
-                                  const Tilt& mean) {
-    if (row < 0)
-        return {0, 0, 0};
-    double low[3], high[3];
-    for (int a = 0; a < 3; ++a) {
-        low[a] = least_magnitude(s.minus[a], s.plus[a]);
-        high[a] = most_magnitude(s.minus[a], s.plus[a]);
+std::array<double, 3> dissipation(const RateTables& tables, const RowPair& rows, bool extruded,
+                                  const Slopes& s, const Tilt& mean) {
+    std::array<double, 3> a = of_row(tables, rows.row, extruded, s, mean);
+    if (rows.share > 0) {
+        const std::array<double, 3> other = of_row(tables, rows.other, extruded, s, mean);
+        for (int axis = 0; axis < 3; ++axis)
+            a[axis] += rows.share * (other[axis] - a[axis]);
     }
-    const auto share = [](double one, double other_square) {
-        const double square = one * one + other_square;
-        return square > 0 ? one / std::sqrt(square) : 0;
-    };
-    if (tables.constant(row)) {
-        const double rate = std::fabs(tables.rate(row, 0));
-        return {rate * share(high[0], low[1] * low[1] + low[2] * low[2]),
-                rate * share(high[1], low[0] * low[0] + low[2] * low[2]),
-                rate * share(high[2], low[0] * low[0] + low[1] * low[1])};
-    }
-    const WaveSpeed w = over_box(tables, row, extruded, box_of(extruded, s), mean);
-    if (extruded)
-        return {w.horizontal, 0, w.vertical};
-    return {w.horizontal * share(high[0], low[1] * low[1]),
-            w.horizontal * share(high[1], low[0] * low[0]), w.vertical};
+    return a;
 }
 
 } // namespace rille::geometry

@@ -23,6 +23,12 @@ struct WaveSpeed {
     double horizontal = 0, vertical = 0;
 };
 
+/// Rows of two neighbours, interpolated: (1 - share) row + share other; -1 has rate 0.
+struct RowPair {
+    int row = -1, other = -1;
+    double share = 0; ///< of `other`; 0 where there is none
+};
+
 /// Fast reading of the tables of a NormalRates: they must outlive this object.
 class RateTables {
 public:
@@ -37,9 +43,17 @@ public:
         const double* v = values(row) + s;
         return v[0] + (v[1] - v[0]) * ((angle - rates_.angles[s]) * inverse_width_[s]);
     }
+    double rate(const RowPair& pair, double angle) const {
+        const double own = rate(pair.row, angle);
+        return pair.share > 0 ? own + pair.share * (rate(pair.other, angle) - own) : own;
+    }
     bool constant(int row) const { return row < 0 || constant_[row]; }
     /// Whether a row has any rate but 0.
     bool moves(int row) const { return row >= 0 && (!constant_[row] || values(row)[0] != 0); }
+    bool constant(const RowPair& p) const {
+        return constant(p.row) && (p.share == 0 || constant(p.other));
+    }
+    bool moves(const RowPair& p) const { return moves(p.row) || (p.share > 0 && moves(p.other)); }
     /// Over tilts from `low` to `high`, low.angle <= high.angle, both within the table.
     WaveSpeed wave_speed(int row, const Tilt& low, const Tilt& high) const;
 
@@ -60,9 +74,9 @@ private:
 /// (`recedes`: the solid recedes, else it grows), and in `waves` the sum of |n_x|, |n_y|, |n_z|.
 double upwind_steepness(const Slopes&, bool recedes, double& waves);
 
-/// Dissipation coefficients of local Lax-Friedrichs for one cell and row, x, y, z [nm/s]; `mean` is
-/// the tilt of the mean slopes.
-std::array<double, 3> dissipation(const RateTables&, int row, bool extruded, const Slopes&,
+/// Dissipation coefficients of local Lax-Friedrichs for one cell and its rows, x, y, z [nm/s];
+/// `mean` is the tilt of the mean slopes.
+std::array<double, 3> dissipation(const RateTables&, const RowPair&, bool extruded, const Slopes&,
                                   const Tilt& mean);
 
 } // namespace rille::geometry

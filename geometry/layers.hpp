@@ -15,13 +15,13 @@ namespace rille::geometry {
 struct Layers {
     static constexpr int capacity = 16;
     int count = 0;
-    std::array<int, capacity> row{};
+    std::array<RowPair, capacity> row{};
     std::array<double, capacity> thickness{};
 
     void add(int table_row, double depth) {
         if (count == capacity)
             return;
-        row[count] = table_row;
+        row[count] = {table_row, -1, 0};
         thickness[count++] = depth;
     }
 };

@@ -73,22 +73,22 @@ double redistance(Band& band, const Surface& surface, const ClosestElements& clo
     }
     // Put back what moves the contour; what is put back may unsettle a neighbour, so until it
     // holds.
-    for (bool settled = false; !settled;) {
-        settled = true;
+    std::vector<int> back;
+    do {
+        back.clear();
         for (const int c : changed) {
-            if (!flag[c])
-                continue;
-            for (const int n : band.neighbour[c]) {
-                if (n < 0 ||
-                    crossing_shift(old[c], old[n], band.phi[c], band.phi[n]) <= redistance_limit)
-                    continue;
-                band.phi[c] = old[c];
-                flag[c] = 0;
-                settled = false;
-                break;
-            }
+            const auto moves = [&](int n) {
+                return n >= 0 && crossing_shift(old[c], old[n], band.phi[c], band.phi[n]) >
+                                     redistance_limit;
+            };
+            if (flag[c] && std::any_of(band.neighbour[c].begin(), band.neighbour[c].end(), moves))
+                back.push_back(c);
         }
-    }
+        for (const int c : back) {
+            band.phi[c] = old[c];
+            flag[c] = 0;
+        }
+    } while (!back.empty());
     double most = 0;
     for (const int c : changed)
         for (const int n : band.neighbour[c])
