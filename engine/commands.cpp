@@ -9,7 +9,6 @@
 #include "engine/output_names.hpp"
 #include "engine/run.hpp"
 #include "engine/run_output.hpp"
-#include "geometry/check.hpp"
 
 #include <chrono>
 #include <ctime>
@@ -95,7 +94,7 @@ int run_command(const std::string& case_path, const std::string& folder, bool fo
         std::cout << metrics_json(the_case, metrics).dump(2) << '\n';
     else if (!options.quiet)
         std::cout << closing_text(the_case, result.record, metrics, folder);
-    if (!result.record.failure.empty()) throw NumericsError(result.record.failure);
+    if (result.error) std::rethrow_exception(result.error);
     return 0;
 }
 

@@ -166,9 +166,10 @@ RunResult run_case(const Case& the_case, RunObserver& observer, const std::atomi
         record.status = !simulation.finished()     ? "interrupted"
                         : simulation.all_reached() ? "done"
                                                    : "not cleared";
-    } catch (const NumericsError& error) {
+    } catch (const std::exception& error) {
         record.status = "failed";
         record.failure = error.what();
+        result.error = std::current_exception();
     }
     result.last = snapshot(the_case, simulation, record.failure.empty());
     note_health(the_case, simulation, record);

@@ -22,8 +22,8 @@ public:
 };
 
 /// Runs a case from its first step to its last, or until `stop` is set (seen after each refresh).
-/// record.status tells which. Where the numerics fail the state before the failure is returned,
-/// with status "failed" and the reason.
+/// record.status tells which. Where the run fails the state before the failure is returned, with
+/// status "failed" and the error.
 RunResult run_case(const Case&, RunObserver&, const std::atomic<bool>& stop);
 
 /// Estimated length [s] of the process: times as stated, and for steps that end at a film the

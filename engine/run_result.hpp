@@ -7,6 +7,7 @@
 #include "geometry/grown_films.hpp"
 #include "geometry/surface.hpp"
 
+#include <exception>
 #include <functional>
 #include <string>
 #include <vector>
@@ -49,6 +50,7 @@ struct RunResult {
     SurfaceState last;
     std::vector<HistoryRow> history;
     RunRecord record;
+    std::exception_ptr error; ///< what stopped the run, null unless record.status is "failed"
     /// Writes the level set to the path given; empty = no such file.
     std::function<void(const std::string&)> write_level_set;
 };
