@@ -34,8 +34,11 @@ double DirectIons::tally(int m, int element) const {
 }
 
 double DirectIons::tally_at(int m, int element, double angle) const {
-    const std::vector<double>& angles = tables_->angles();
-    return on_row(angles, gathered_.row[m].data() + std::size_t(element) * angles.size(), angle);
+    return on_row(tables_->angles(), tally_row(m, element), angle);
+}
+
+const float* DirectIons::tally_row(int m, int element) const {
+    return gathered_.row[m].data() + std::size_t(element) * tables_->angles().size();
 }
 
 double DirectIons::tally_batch(int b, int m, int element) const {
@@ -47,7 +50,7 @@ double DirectIons::flux(int s, int element) const {
     return gathered_.flux[s][element];
 }
 
-std::vector<double> DirectIons::rate_angles() const {
+const std::vector<double>& DirectIons::rate_angles() const {
     return tables_->angles();
 }
 
