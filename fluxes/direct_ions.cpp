@@ -34,10 +34,14 @@ double DirectIons::tally(int m, int element) const {
 }
 
 double DirectIons::tally_at(int m, int element, double angle) const {
-    const std::vector<double>& angles = tables_->angles();
-    const float* row =
-        gathered_.row[gathered_.row_of[m]].data() + std::size_t(element) * angles.size();
-    return gathered_.factor[m] * on_row(angles, row, angle);
+    const TallyRow row = tally_row(m, element);
+    return row.factor * on_row(tables_->angles(), row.value, angle);
+}
+
+DirectIons::TallyRow DirectIons::tally_row(int m, int element) const {
+    return {gathered_.row[gathered_.row_of[m]].data() +
+                std::size_t(element) * tables_->angles().size(),
+            gathered_.factor[m]};
 }
 
 double DirectIons::tally_batch(int b, int m, int element) const {
@@ -49,7 +53,7 @@ double DirectIons::flux(int s, int element) const {
     return gathered_.flux[s][element];
 }
 
-std::vector<double> DirectIons::rate_angles() const {
+const std::vector<double>& DirectIons::rate_angles() const {
     return tables_->angles();
 }
 

@@ -41,12 +41,18 @@ public:
     double tally(int m, int element) const;
     /// The same with the normal turned to `angle` (convention of geometry::NormalRates).
     double tally_at(int m, int element, double angle) const;
+    /// tally_at(m, e) at the angle rate_angles()[a] is factor * value[a], without interpolation.
+    struct TallyRow {
+        const float* value = nullptr;
+        double factor = 1;
+    };
+    TallyRow tally_row(int m, int element) const;
     /// tally(m, e) from direction batch b of 0..7 alone; extruded has no noise: tally(m, e).
     double tally_batch(int b, int m, int element) const;
     /// Ion flux [nm^-2 s^-1] of ion species s at element e: conserved over the surface.
     double flux(int s, int element) const;
     /// Normal angles at which rates should be tabulated for this distribution.
-    std::vector<double> rate_angles() const;
+    const std::vector<double>& rate_angles() const;
 
     /// What one of the two ways of gathering leaves behind. Vectors over elements.
     struct Gathered {

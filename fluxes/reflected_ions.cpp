@@ -17,6 +17,7 @@ namespace {
 using geometry::Hit;
 
 constexpr std::uint64_t stream = 0x7265666c656374ULL; ///< keeps keys apart from other samplings
+constexpr double degree = 3.14159265358979323846 / 180;
 constexpr int chunk_ions = 1024;
 constexpr double roulette_below = 0.05;
 constexpr int longest_path = 100000; ///< hits; counted as lost, not cut silently
@@ -41,7 +42,19 @@ public:
         : domain_(domain), surface_(surface), caster_(caster), material_(material), ions_(ions),
           tallies_(tallies), reflection_(reflection), options_(options),
           normal_(averaged_normals(surface, arc_average(domain, surface))),
-          per_batch_(std::max(1, options.ions_per_species / batches)) {}
+          per_batch_(std::max(1, options.ions_per_species / batches)) {
+        for (const IonReflection& law : reflection)
+            critical_.push_back(law.probability > 0 && law.critical_deg < 90
+                                    ? std::cos(law.critical_deg * degree) + 1e-12
+                                    : -1);
+        for (std::size_t s = 0; s < ions.size(); ++s) {
+            least_energy_.push_back(least_energy(static_cast<int>(s)));
+            own_tallies_.emplace_back();
+            for (std::size_t m = 0; m < tallies.size(); ++m)
+                if (tallies[m].ion == static_cast<int>(s))
+                    own_tallies_.back().push_back(static_cast<int>(m));
+        }
+    }
 
     ReflectedIons run() {
         std::vector<Chunk> chunks = plan();
@@ -89,8 +102,9 @@ private:
         const auto i = static_cast<std::uint32_t>(index);
         // In extruded the place of launch and the polar angle, in full the place, is the first
         // pair.
-        const auto p0 = points.pair(i, 0), p1 = points.pair(i, 1), p2 = points.pair(i, 2);
         const bool flat = domain_.extruded();
+        const auto p0 = points.pair(i, 0), p1 = points.pair(i, 1);
+        const auto p2 = flat ? std::array<double, 2>{} : points.pair(i, 2);
         const Vec3 start(domain_.x_min() + domain_.width_x() * p0[0],
                          flat ? 0.0 : domain_.y_min() + domain_.width_y() * p0[1],
                          caster_.z_open());
@@ -106,10 +120,11 @@ private:
             const Vec3 mean = normal_[hit.element];
             const double cosine = std::clamp(-hit.direction.dot(mean), 0.0, 1.0);
             if (hits > 0) deposit(chunk, hit.element, weight, energy, cosine);
+            if (!(cosine < critical_[material_[hit.element]])) return; // stays
             const IonReflection& law = reflection_[material_[hit.element]];
             weight *= reflection_probability(law, cosine);
             energy *= energy_kept(law, ions_[chunk.ion].mass_amu, cosine);
-            if (!(weight > 0) || !can_act(chunk.ion, energy)) return;
+            if (!(weight > 0) || energy <= least_energy_[chunk.ion]) return;
             if (weight < roulette_below) {
                 if (unit_interval(stream_key(key, hits, 7)) * roulette_below >= weight) return;
                 weight = roulette_below;
@@ -121,19 +136,29 @@ private:
         }
     }
 
-    /// Energy only falls, and no yield grows when it does: below all thresholds an ion is done.
-    bool can_act(int ion, double energy) const {
-        return std::any_of(tallies_.begin(), tallies_.end(), [&](const Tally& t) {
-            return t.ion == ion && energy_yield(t.yield.energy, energy) > 0;
-        });
+    /// Energy only falls, and no yield grows when it does: an ion at or below the energy returned
+    /// (found to 1e-9 of itself from below) does nothing any more.
+    double least_energy(int ion) const {
+        const auto acts = [&](double energy) {
+            return std::any_of(tallies_.begin(), tallies_.end(), [&](const Tally& t) {
+                return t.ion == ion && energy_yield(t.yield.energy, energy) > 0;
+            });
+        };
+        double low = 1e-6, high = 1e7;
+        if (acts(low)) return 0;
+        if (!acts(high)) return high;
+        while (high > low * (1 + 1e-9)) {
+            const double middle = std::sqrt(low * high);
+            (acts(middle) ? high : low) = middle;
+        }
+        return low;
     }
 
     void deposit(Chunk& chunk, int element, double weight, double energy, double cosine) const {
         const double base = domain_.width_x() * (domain_.extruded() ? 1.0 : domain_.width_y());
         const double flux =
             weight * ions_[chunk.ion].flux * base / (per_batch_ * surface_.area[element]);
-        for (std::size_t m = 0; m < tallies_.size(); ++m) {
-            if (tallies_[m].ion != chunk.ion) continue;
+        for (const int m : own_tallies_[chunk.ion]) {
             const double value = flux * tallies_[m].yield(energy, cosine);
             if (value != 0) chunk.deposits.push_back({m * surface_.size() + element, value});
         }
@@ -148,6 +173,9 @@ private:
     const std::vector<IonReflection>& reflection_;
     const ReflectionOptions& options_;
     std::vector<Vec3> normal_;
+    std::vector<double> critical_;     ///< per material: no reflection at cosines from here on
+    std::vector<double> least_energy_; ///< per ion species [eV]
+    std::vector<std::vector<int>> own_tallies_; ///< per ion species
     int per_batch_;
 };
 

@@ -46,8 +46,9 @@ public:
         const std::uint64_t key = mix64(key_ + 0x632be59bd9b4e019ULL * (1 + std::uint64_t(pair)));
         const std::uint32_t i =
             pair == 0 ? index : reverse(permute_upwards(reverse(index), mix64(key ^ 1)));
-        return {scrambled(reverse(i), mix64(key ^ 2)),
-                scrambled(second_dimension(i), mix64(key ^ 3))};
+        // Both dimensions hold the digits lowest first, as the permutation wants them.
+        return {fraction(permute_upwards(i, mix64(key ^ 2))),
+                fraction(permute_upwards(second_dimension(i), mix64(key ^ 3)))};
     }
     /// Dimensions 0 to 3.
     std::array<double, 4> four(std::uint32_t index) const {
@@ -63,13 +64,17 @@ private:
         v = ((v >> 8) & 0x00ff00ffu) | ((v & 0x00ff00ffu) << 8);
         return (v >> 16) | (v << 16);
     }
-    /// Direction numbers of the primitive polynomial x + 1: v_1 = 2^31, v_k = v_(k-1) ^ (v_(k-1) >>
-    /// 1).
+    /// Digits, lowest first, of the dimension whose direction numbers follow from the primitive
+    /// polynomial x + 1: v_1 = 2^31, v_k = v_(k-1) ^ (v_(k-1) >> 1). Then v_k holds the binomials
+    /// (k-1 over j) mod 2, which are odd where the bits of j are among those of k - 1 (Lucas):
+    /// digit j is the parity of the index bits k with j's bits among k's, summed up bit by bit of
+    /// j.
     static std::uint32_t second_dimension(std::uint32_t index) {
-        std::uint32_t value = 0;
-        for (std::uint32_t v = 0x80000000u; index; index >>= 1, v ^= v >> 1)
-            if (index & 1) value ^= v;
-        return value;
+        index ^= (index >> 1) & 0x55555555u;
+        index ^= (index >> 2) & 0x33333333u;
+        index ^= (index >> 4) & 0x0f0f0f0fu;
+        index ^= (index >> 8) & 0x00ff00ffu;
+        return index ^ (index >> 16);
     }
     /// A permutation in which each bit is changed by lower bits only. Adding a constant, adding an
     /// even multiple, and xor with an even multiple all keep that order.
@@ -86,9 +91,7 @@ private:
         v ^= v * ((high << 1) & ~1u);
         return v + low;
     }
-    static double scrambled(std::uint32_t digits, std::uint64_t key) {
-        return (reverse(permute_upwards(reverse(digits), key))) * (1.0 / 4294967296.0);
-    }
+    static double fraction(std::uint32_t digits) { return reverse(digits) * (1.0 / 4294967296.0); }
 
     std::uint64_t key_;
 };

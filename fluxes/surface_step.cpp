@@ -141,10 +141,12 @@ void tabulate(const Setting& s, const IonArrivals& ions, SurfaceStep& step) {
         const auto neutrals = at_element(step.neutral, e);
         const double* bounced = ions.reflected.data() + std::size_t(e) * ions.tallies;
         std::vector<double> tallies(ions.tallies), last;
+        std::vector<DirectIons::TallyRow> direct(any_ions ? ions.tallies : 0);
+        for (int m = 0; m < int(direct.size()); ++m)
+            direct[m] = ions.direct->tally_row(m, e);
         for (std::size_t a = 0; a < angles; ++a) {
             for (int m = 0; m < ions.tallies; ++m)
-                tallies[m] =
-                    bounced[m] + (any_ions ? ions.direct->tally_at(m, e, rates.angles[a]) : 0.0);
+                tallies[m] = bounced[m] + (any_ions ? direct[m].factor * direct[m].value[a] : 0.0);
             const bool same = a > 0 && tallies == last; // turned away from every ion, or no ions
             for (int row = rates.first_row[e]; row < rates.first_row[e + 1]; ++row) {
                 double* value = rates.table.data() + std::size_t(row) * angles + a;
