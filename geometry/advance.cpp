@@ -36,6 +36,7 @@ struct LayeredCell {
     unsigned beside = 0;  ///< sides whose neighbour is nearer to a resting wall than to this front
     double wall = std::numeric_limits<double>::infinity(); ///< [nm] bound of phi at a resting wall
     double wall_rate = 0;
+    bool directional = false; ///< the rate below the foot depends on the normal
     Layers layers;
     BetweenCentres place;
 };
@@ -282,11 +283,13 @@ double Advance::layered_change(const Slopes& s, const Layers& layers, double dt)
 
 /// Slopes of the front that the cell belongs to. Where a front meets a resting wall at an inner
 /// edge, the gas beyond the bisector is nearer to the wall; its phi would hold the front back, so
-/// the front's own plane stands in for it.
+/// the front's own plane stands in for it. So it does behind an interface that the front runs along
+/// if the rate depends on the normal: a vertical wall must not be seen tilted by what is below it.
 Slopes Advance::special_slopes(const double* phi, const LayeredCell& at) const {
     Slopes s = slopes(phi, at.cell, at.unseen | at.beside);
+    const unsigned plane = at.beside | (at.directional ? at.unseen : 0u);
     for (int side = 0; side < 6; ++side) {
-        if (!(at.beside >> side & 1))
+        if (!(plane >> side & 1))
             continue;
         (side & 1 ? s.plus : s.minus)[side / 2] = (&surface_.normal[element_[at.cell]].x)[side / 2];
     }
@@ -330,6 +333,7 @@ void Advance::find_layers(LayeredCell& at, Speed& most) {
     Foot foot = at.foot;
     foot.point += foot.inward * ((phi[c] - at.phi0) / std::max(length(), 0.5));
     at.unseen = finder_.unseen_sides(c, phi, e, foot, element_tilt_[e].angle);
+    at.directional = !tables_.constant(finder_.row_below(e, foot));
     at.beside = 0;
     for (int side = 0; side < 6; ++side) {
         const int next = band_.neighbour[c][side];
