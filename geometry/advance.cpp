@@ -34,6 +34,9 @@ struct LayeredCell {
     unsigned resting = 0; ///< sides (bits) whose neighbour belongs to a wall that rests
     unsigned unseen = 0;  ///< sides behind an interface that the front runs along
     unsigned beside = 0;  ///< sides whose neighbour is nearer to a resting wall than to this front
+    double wall = std::numeric_limits<double>::infinity(); ///< [nm] bound of phi at a resting wall
+    double wall_rate = 0;
+    bool directional = false; ///< the rate below the foot depends on the normal
     Layers layers;
     BetweenCentres place;
 };
@@ -62,6 +65,7 @@ private:
     void classify_elements();
     BetweenCentres place_of(std::size_t c, const ClosestElements&) const;
     unsigned resting_sides(std::size_t c) const;
+    void find_wall(LayeredCell&) const;
     Slopes special_slopes(const double* phi, const LayeredCell&) const;
     Slopes slopes(const double* phi, std::size_t c, unsigned unseen = 0) const {
         return extruded_ ? slopes_2d(band_, phi, c, 1 / h_, unseen)
@@ -90,6 +94,7 @@ private:
     double h_;
     AdvanceReport report_;
     double moved_since_refresh_ = 0; ///< [cells]
+    double time_of_refresh_ = 0;     ///< [s]
     std::vector<int> element_;
     std::vector<RowPair> row_;
     std::vector<double> slope_, next_; ///< dphi/dt at the first stage; phi after it
@@ -117,6 +122,7 @@ void Advance::refresh() {
     slope_.assign(band_.size(), 0.0);
     next_ = band_.phi;
     moved_since_refresh_ = 0;
+    time_of_refresh_ = report_.time;
 }
 
 void Advance::classify_cells(const ClosestElements& closest) {
@@ -149,6 +155,7 @@ void Advance::classify_cells(const ClosestElements& closest) {
             layered_.back().phi0 = band_.phi[c];
             layered_.back().resting = resting_sides(c);
             layered_.back().place = place_of(c, closest);
+            find_wall(layered_.back());
         }
 }
 
@@ -181,6 +188,42 @@ unsigned Advance::resting_sides(std::size_t c) const {
             sides |= 1u << side;
     }
     return sides;
+}
+
+/// A front that runs down along a resting wall leaves the wall behind it: at an inner edge the
+/// distance to the surface is at most the distance to the wall's plane, on either side of it.
+void Advance::find_wall(LayeredCell& at) const {
+    const std::size_t c = at.cell;
+    const int e = element_[c];
+    const Band::Cell& cell = band_.cells[c];
+    const Vec3 p = band_.domain.node(cell.i, cell.j, cell.k);
+    const auto apart = [this](Vec3 d) {
+        if (band_.domain.sides == Sides::periodic) {
+            const double wx = band_.domain.width_x(), wy = band_.domain.width_y();
+            d.x -= wx * std::round(d.x / wx);
+            if (!extruded_)
+                d.y -= wy * std::round(d.y / wy);
+        }
+        return d;
+    };
+    for (int side = 0; side < 6; ++side) {
+        if (!(at.resting >> side & 1))
+            continue;
+        const int w = element_[band_.neighbour[c][side]];
+        const Vec3& n = surface_.normal[w];
+        const Vec3 wall = surface_.centre[w] - n * report_.moved[w];
+        const Vec3 front = surface_.centre[e] - surface_.normal[e] * report_.moved[e];
+        if (apart(wall - front).dot(surface_.normal[e]) <= 0)
+            continue;
+        const double distance = apart(p - wall).dot(n);
+        if (distance >= at.wall)
+            continue;
+        at.wall = distance;
+        // What the front lays bare of the wall recedes as the front's film does at that normal.
+        const int row = finder_.row_below(e, at.foot);
+        at.wall_rate = std::max(own_rate_[w], tables_.rate(row, element_tilt_[w].angle));
+    }
+    at.wall = std::max(at.wall, at.phi0);
 }
 
 void Advance::classify_elements() {
@@ -240,11 +283,13 @@ double Advance::layered_change(const Slopes& s, const Layers& layers, double dt)
 
 /// Slopes of the front that the cell belongs to. Where a front meets a resting wall at an inner
 /// edge, the gas beyond the bisector is nearer to the wall; its phi would hold the front back, so
-/// the front's own plane stands in for it.
+/// the front's own plane stands in for it. So it does behind an interface that the front runs along
+/// if the rate depends on the normal: a vertical wall must not be seen tilted by what is below it.
 Slopes Advance::special_slopes(const double* phi, const LayeredCell& at) const {
     Slopes s = slopes(phi, at.cell, at.unseen | at.beside);
+    const unsigned plane = at.beside | (at.directional ? at.unseen : 0u);
     for (int side = 0; side < 6; ++side) {
-        if (!(at.beside >> side & 1))
+        if (!(plane >> side & 1))
             continue;
         (side & 1 ? s.plus : s.minus)[side / 2] = (&surface_.normal[element_[at.cell]].x)[side / 2];
     }
@@ -288,6 +333,7 @@ void Advance::find_layers(LayeredCell& at, Speed& most) {
     Foot foot = at.foot;
     foot.point += foot.inward * ((phi[c] - at.phi0) / std::max(length(), 0.5));
     at.unseen = finder_.unseen_sides(c, phi, e, foot, element_tilt_[e].angle);
+    at.directional = !tables_.constant(finder_.row_below(e, foot));
     at.beside = 0;
     for (int side = 0; side < 6; ++side) {
         const int next = band_.neighbour[c][side];
@@ -348,9 +394,11 @@ void Advance::step(double dt) {
     for_ranges(layered_.size(), [&](std::size_t begin, std::size_t end) {
         for (std::size_t l = begin; l < end; ++l) {
             const std::size_t c = layered_[l].cell;
-            const double second =
-                layered_change(special_slopes(next, layered_[l]), layered_[l].layers, dt);
-            band_.phi[c] += 0.5 * dt * (slope_[c] + second);
+            const LayeredCell& at = layered_[l];
+            const double second = layered_change(special_slopes(next, at), at.layers, dt);
+            const double time = report_.time + dt - time_of_refresh_;
+            band_.phi[c] = std::min(band_.phi[c] + 0.5 * dt * (slope_[c] + second),
+                                    at.wall + at.wall_rate * time);
         }
     });
     move_elements(dt);

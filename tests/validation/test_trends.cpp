@@ -1,26 +1,17 @@
 // SPDX-License-Identifier: Apache-2.0
 #include "engine/metrics.hpp"
-#include "engine/run.hpp"
-#include "tests/support/trench_case.hpp"
+#include "tests/support/run_quietly.hpp"
 
 #include <catch2/catch.hpp>
 
 using namespace rille;
 using geometry::Vec3;
+using tests::etch_by_ions;
+using tests::flat_yield;
+using tests::run_quietly;
 using tests::TrenchCase;
 
 namespace {
-
-struct Silent : engine::RunObserver {
-    void progressed(const engine::Simulation&, const engine::HistoryRow&, double) override {}
-    void framed(const engine::SurfaceState&) override {}
-};
-
-engine::RunResult run(const engine::Case& c) {
-    Silent silent;
-    const std::atomic<bool> stop{false};
-    return engine::run_case(c, silent, stop);
-}
 
 /// Widest full width of the film below the mask, less the mask opening [nm].
 geometry::Measured widening(const engine::Case& c, const engine::RunResult& outcome) {
@@ -40,38 +31,29 @@ double floor_depth(const engine::Case& c, const engine::RunResult& outcome, int 
     return -floor->centre.value;
 }
 
-fluxes::YieldFunction flat_yield(double value) {
-    return {fluxes::ConstantLaw{value}, fluxes::FlatAngle{}, 1.0};
-}
-
-/// A film etched by ions alone, equally at every angle of incidence.
-void etch_by_ions(TrenchCase& t, int material, double yield) {
-    t.chemistry(material).density = 50;
-    t.chemistry(material).processes.push_back(
-        fluxes::PhysicalSputtering{{}, {t.add_tally(flat_yield(yield))}});
-}
-
 } // namespace
 
 // Oracle: a wall in the spread of a beam receives ions in proportion to the spread, so the width
 // that it loses grows with it; a beam without spread leaves the walls where they are.
 // Source: common practice, no source.
-// Tolerance: the effect must exceed 5 times the stated sampling error and 0.1 cell.
+// Tolerance: the effect must exceed 5 times the stated sampling error and 0.1 cell; without spread
+// the walls move less than 0.02 cell.
 TEST_CASE("bow grows with the angular spread of the ions", "[validation][trends]") {
     double before = 0;
     for (const double degrees : {0.0, 1.0, 2.0, 4.0}) {
-        TrenchCase t(120, 2, 60, 200);
+        TrenchCase t(100, 2.5, 60, 200);
         t.add_opening("trench", 60);
         t.set_ions(60, degrees == 0 ? fluxes::IonDistribution::beam(100, Vec3(0, 0, -1))
                                     : fluxes::IonDistribution::gaussian(
                                           100, std::tan(degrees * 3.14159265358979 / 180)));
-        etch_by_ions(t, 0, 1.0);
+        etch_by_ions(t, 0, flat_yield(1));
         t.add_step("main", 120);
-        const auto outcome = run(t.c);
+        const auto outcome = run_quietly(t.c);
         const auto width = widening(t.c, outcome);
         CAPTURE(degrees, width.value);
+        WARN("spread " << degrees << " deg: widening " << width.value << " nm");
         if (degrees == 0)
-            CHECK(std::fabs(width.value) < 0.1 * t.c.domain.spacing);
+            CHECK(std::fabs(width.value) < 2 * 0.02 * t.c.domain.spacing);
         else
             CHECK(width.value >
                   before + std::max(0.1 * t.c.domain.spacing,
@@ -89,8 +71,8 @@ TEST_CASE("more passivant gives more taper", "[validation][trends]") {
     for (const double passivant : {0.0, 20.0, 60.0}) {
         TrenchCase t(120, 2, 40, 150);
         t.add_opening("trench", 60);
-        t.set_ions(60, fluxes::IonDistribution::gaussian(100, 0.01));
-        etch_by_ions(t, 0, 1.0);
+        t.set_ions(60, fluxes::IonDistribution::beam(100, Vec3(0, 0, -1)));
+        etch_by_ions(t, 0, flat_yield(1));
         const int neutral = t.add_neutral("P", passivant);
         const int removal = t.add_tally(flat_yield(1.0));
         t.chemistry(0).coverages = {"P"};
@@ -107,16 +89,17 @@ TEST_CASE("more passivant gives more taper", "[validation][trends]") {
         t.chemistry(3).density = 24;
         t.chemistry(3).processes = {build_up, fluxes::PhysicalSputtering{{}, {removal}}};
         t.add_step("main", 60);
-        const auto outcome = run(t.c);
+        const auto outcome = run_quietly(t.c);
         const double depth = floor_depth(t.c, outcome, 0);
         const auto angles =
             geometry::sidewall_angles(t.c.domain, outcome.last.surface,
                                       engine::feature_sites(t.c)[0], -0.8 * depth, -0.2 * depth);
         REQUIRE(angles);
+        WARN("passivant " << passivant << ": " << angles->left.value << " deg");
         CAPTURE(passivant, depth, angles->left.value, angles->right.value);
-        CHECK(angles->left.value == Approx(angles->right.value).margin(0.3));
+        CHECK(angles->left.value == Approx(angles->right.value).margin(0.5));
         if (passivant == 0)
-            CHECK(angles->left.value == Approx(90.0).margin(0.5));
+            CHECK(angles->left.value == Approx(90.0).margin(0.1));
         else
             CHECK(angles->left.value < before - 0.5);
         before = angles->left.value;
@@ -143,8 +126,9 @@ TEST_CASE("the narrower of two trenches lags when neutrals limit", "[validation]
         t.chemistry(0).processes = {fluxes::PhysicalSputtering{{}, {t.add_tally(flat_yield(1))}}};
     }
     t.add_step("main", 80);
-    const auto outcome = run(t.c);
+    const auto outcome = run_quietly(t.c);
     const double narrow = floor_depth(t.c, outcome, 0), wide = floor_depth(t.c, outcome, 1);
+    WARN("depths " << narrow << " and " << wide << " nm");
     CAPTURE(narrow, wide);
     CHECK(wide > 30);
     if (neutral_limited)
@@ -154,8 +138,7 @@ TEST_CASE("the narrower of two trenches lags when neutrals limit", "[validation]
 }
 
 // Oracle: a tapered mask that erodes at vertical rate m opens its bottom by m t / tan(angle) a
-// side. Source: geometry, derived here. Tolerance: 15 % of the opening or half a cell a side (the
-// scheme's smearing of a contact), and monotone.
+// side. Source: geometry, derived here. Tolerance: 5 % or 0.15 cell a side, and monotone.
 TEST_CASE("faster mask erosion opens the CD", "[validation][trends]") {
     double before = 0;
     for (const double yield : {0.0, 0.2, 0.5}) {
@@ -163,18 +146,44 @@ TEST_CASE("faster mask erosion opens the CD", "[validation][trends]") {
         t.c.mask.sidewall_angle_deg = 80;
         t.add_opening("trench", 50);
         t.set_ions(60, fluxes::IonDistribution::beam(100, Vec3(0, 0, -1)));
-        etch_by_ions(t, 0, 1.0);
-        if (yield > 0) etch_by_ions(t, 1, yield);
+        etch_by_ions(t, 0, flat_yield(1));
+        if (yield > 0) etch_by_ions(t, 1, flat_yield(yield));
         t.add_step("main", 60);
-        const auto outcome = run(t.c);
+        const auto outcome = run_quietly(t.c);
         const auto cd =
             geometry::cd_at(t.c.domain, outcome.last.surface, engine::feature_sites(t.c)[0], -1.0);
         REQUIRE(cd);
         const double opened = cd->value - 50;
         const double expected = 2 * (yield * 60 / 50 * 60) / std::tan(80 * 3.14159265358979 / 180);
+        WARN("mask yield " << yield << ": opened by " << opened << " nm, " << expected
+                            << " expected");
         CAPTURE(yield, opened, expected);
-        CHECK(opened == Approx(expected).epsilon(0.15).margin(2 * 0.5));
+        CHECK(opened == Approx(expected).epsilon(0.05).margin(2 * 0.15 * t.c.domain.spacing));
         CHECK(opened >= before - 0.05);
         before = opened;
     }
+}
+
+// Oracle: a case that is its own mirror image, with nothing random in it, stays so.
+// Source: symmetry. Tolerance: 1e-5 nm, what single-precision tables leave after 70 refreshes.
+TEST_CASE("a mirror-symmetric case stays symmetric", "[validation][symmetry]") {
+    const bool spread = GENERATE(false, true);
+    TrenchCase t(120, 2, 60, 200);
+    t.c.mask.sidewall_angle_deg = 80;
+    t.add_opening("trench", 50);
+    t.set_ions(60, spread ? fluxes::IonDistribution::gaussian(100, 0.02)
+                          : fluxes::IonDistribution::beam(100, Vec3(0, 0, -1)));
+    etch_by_ions(t, 0, flat_yield(1));
+    etch_by_ions(t, 1, flat_yield(0.2));
+    t.add_step("main", 40);
+    const auto outcome = run_quietly(t.c);
+    const auto& s = outcome.last.surface;
+    const std::size_t n = s.vertices.size();
+    double most = 0;
+    for (std::size_t v = 0; v < n; ++v) {
+        const Vec3 &a = s.vertices[v], &b = s.vertices[n - 1 - v];
+        most = std::max({most, std::fabs(a.x + b.x), std::fabs(a.z - b.z)});
+    }
+    CAPTURE(spread, n);
+    CHECK(most < 1e-5);
 }
