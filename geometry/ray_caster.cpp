@@ -4,35 +4,25 @@
 #include "geometry/quad_caster.hpp"
 #include "geometry/segment_caster.hpp"
 
-#include <array>
+#include <tbb/cache_aligned_allocator.h>
+#include <tbb/enumerable_thread_specific.h>
+
 #include <optional>
 
 namespace rille::geometry {
 
 namespace {
 
-/// Integer counters spread over cache lines, so that threads do not wait for each other.
-class Counter {
-public:
-    void add_one() {
-        // The address of a thread's own variable tells threads apart.
-        thread_local const char here = 0;
-        const auto page = reinterpret_cast<std::uintptr_t>(&here) >> 12;
-        slots_[page % slots_.size()].value.fetch_add(1, std::memory_order_relaxed);
+/// Counts of one thread, alone on its cache line; only that thread writes them.
+struct alignas(64) Counts {
+    std::atomic<std::uint64_t> traced{0}, lost{0};
+    static void add_one(std::atomic<std::uint64_t>& count) {
+        count.store(count.load(std::memory_order_relaxed) + 1, std::memory_order_relaxed);
     }
-    std::uint64_t total() const {
-        std::uint64_t sum = 0;
-        for (const Slot& s : slots_)
-            sum += s.value.load(std::memory_order_relaxed);
-        return sum;
-    }
-
-private:
-    struct alignas(64) Slot {
-        std::atomic<std::uint64_t> value{0};
-    };
-    std::array<Slot, 32> slots_;
 };
+using CountsOfThreads =
+    tbb::enumerable_thread_specific<Counts, tbb::cache_aligned_allocator<Counts>,
+                                    tbb::ets_key_per_instance>;
 
 } // namespace
 
@@ -40,7 +30,14 @@ struct RayCaster::Impl {
     double z_open;
     std::optional<SegmentCaster> segments; ///< extruded
     std::unique_ptr<QuadCaster> quads;     ///< full
-    mutable Counter traced, lost;
+    mutable CountsOfThreads counts;
+
+    std::uint64_t sum(std::atomic<std::uint64_t> Counts::*count) const {
+        std::uint64_t total = 0;
+        for (const Counts& c : counts)
+            total += (c.*count).load(std::memory_order_relaxed);
+        return total;
+    }
 };
 
 RayCaster::RayCaster(const Domain& domain, const Surface& surface, double z_open)
@@ -57,8 +54,9 @@ RayCaster::~RayCaster() = default;
 Hit RayCaster::trace(const Vec3& origin, const Vec3& direction, int from_element) const {
     const Hit hit = impl_->segments ? impl_->segments->trace(origin, direction, from_element)
                                     : impl_->quads->trace(origin, direction, from_element);
-    impl_->traced.add_one();
-    if (hit.kind == Hit::Kind::lost) impl_->lost.add_one();
+    Counts& counts = impl_->counts.local();
+    Counts::add_one(counts.traced);
+    if (hit.kind == Hit::Kind::lost) Counts::add_one(counts.lost);
     return hit;
 }
 
@@ -66,10 +64,10 @@ double RayCaster::z_open() const {
     return impl_->z_open;
 }
 std::uint64_t RayCaster::traced() const {
-    return impl_->traced.total();
+    return impl_->sum(&Counts::traced);
 }
 std::uint64_t RayCaster::lost() const {
-    return impl_->lost.total();
+    return impl_->sum(&Counts::lost);
 }
 
 } // namespace rille::geometry

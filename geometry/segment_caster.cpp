@@ -6,6 +6,9 @@
 #include <algorithm>
 #include <cmath>
 #include <limits>
+#ifdef __SSE2__
+#include <emmintrin.h>
+#endif
 
 namespace rille::geometry {
 
@@ -21,21 +24,48 @@ double safe_inverse(double v) {
     return std::signbit(v) ? -far_away : far_away;
 }
 
+struct Pair {
+    double x, z;
+};
+
+/// Bit k: vertex k lies on the right of the ray through o along d; side: its cross product with d.
+/// Both ways give the same bits.
+inline unsigned vertices_on_right(const double* x, const double* z, const Pair& o, const Pair& d,
+                                  double positive, double* side) {
+    unsigned right = 0;
+#ifdef __SSE2__
+    const __m128d ox = _mm_set1_pd(o.x), oz = _mm_set1_pd(o.z);
+    const __m128d dx = _mm_set1_pd(d.x), dz = _mm_set1_pd(d.z), limit = _mm_set1_pd(positive);
+    for (int k = 0; k < 8; k += 2) {
+        const __m128d along = _mm_mul_pd(dx, _mm_sub_pd(_mm_load_pd(z + k), oz));
+        const __m128d across = _mm_mul_pd(dz, _mm_sub_pd(_mm_load_pd(x + k), ox));
+        const __m128d s = _mm_sub_pd(along, across);
+        _mm_store_pd(side + k, s);
+        right |= static_cast<unsigned>(_mm_movemask_pd(_mm_cmplt_pd(s, limit))) << k;
+    }
+#else
+    for (int k = 0; k < 8; ++k) {
+        side[k] = d.x * (z[k] - o.z) - d.z * (x[k] - o.x);
+        right |= static_cast<unsigned>(side[k] < positive) << k;
+    }
+#endif
+    return right;
+}
+
 } // namespace
 
 struct SegmentCaster::Ray {
     double ox, oz;         ///< origin in the frame of the present image
-    double dx, dz;         ///< unit in the plane
-    double y, dy;          ///< out of plane: y and slope dy per in-plane length
-    double per_length = 1; ///< path length per in-plane length
+    double dx, dz;         ///< in-plane part of the unit direction: t is path length
+    double inverse_square; ///< 1 / (dx^2 + dz^2)
+    double slack;          ///< `slack_` as path length
     double inverse_x, inverse_z;
     double positive; ///< a vertex with side(v) >= positive lies on the left
-    double t = 0;    ///< in-plane length so far
+    double t = 0;    ///< path length so far
     int ix = 0, iz = 0;
     int from = -1;
     int folds = 0;
     bool flipped = false; ///< x runs backwards in this image
-    Vec3 direction;
 
     // The sense of travel also for a ray along z or x (a zero keeps its sign bit).
     bool rightwards() const { return inverse_x > 0; }
@@ -52,7 +82,8 @@ struct SegmentCaster::Ray {
 struct SegmentCaster::Best {
     double t = far_away;
     double share = 0; ///< of the way from a to b
-    int element = -1;
+    const Run* run = nullptr;
+    int k = 0; ///< segment of the run
 };
 
 SegmentCaster::SegmentCaster(const Domain& domain, const Surface& surface, double z_open)
@@ -106,25 +137,30 @@ bool SegmentCaster::enter(Ray& ray) const {
     return true;
 }
 
-/// Moves the ray to the cell beyond the edge of a room that it meets first; false if it falls
-/// through the bottom or crosses too many sides.
-bool SegmentCaster::leave(Ray& ray, const Room& room, double tx, double tz) const {
-    ray.t = std::min(tx, tz);
-    const Rectangle& r = room.cells;
-    const bool right = ray.rightwards(), up = ray.upwards(), aside = tx < tz;
-    // Along the other axis the cell never lies behind the present one or outside the room, so
-    // round-off cannot keep a ray from getting on.
-    const int ix = std::clamp(static_cast<int>((ray.ox + ray.t * ray.dx - x_min_) * per_cell_x_),
-                              right ? ray.ix : r.x0, right ? r.x1 : ray.ix);
-    const int iz = std::clamp(static_cast<int>((ray.oz + ray.t * ray.dz - z_min_) * per_cell_z_),
-                              up ? ray.iz : r.z0, up ? r.z1 : ray.iz);
-    const int beyond_x = right ? r.x1 + 1 : r.x0 - 1, beyond_z = up ? r.z1 + 1 : r.z0 - 1;
-    ray.ix = aside ? beyond_x : ix;
-    ray.iz = aside ? iz : beyond_z;
-    if (ray.ix < 0 || ray.ix >= nx_) return cross_side(ray);
-    return ray.iz >= 0;
+/// Moves the ray from a cell to the next one.
+inline void SegmentCaster::cross_cell(Ray& ray, bool aside) const {
+    const int x = ray.rightwards() ? 1 : -1, z = ray.upwards() ? 1 : -1;
+    ray.ix += aside ? x : 0;
+    ray.iz += aside ? 0 : z;
 }
 
+/// Moves the ray to the cell beyond the edge of a room that it meets first.
+inline void SegmentCaster::cross_room(Ray& ray, const Rectangle& r, bool aside) const {
+    const bool right = ray.rightwards(), up = ray.upwards();
+    // Along the other axis the cell never lies behind the present one or outside the room, so
+    // round-off cannot keep a ray from getting on.
+    if (aside) {
+        const double z = (ray.oz + ray.t * ray.dz - z_min_) * per_cell_z_;
+        ray.ix = right ? r.x1 + 1 : r.x0 - 1;
+        ray.iz = std::clamp(static_cast<int>(z), up ? ray.iz : r.z0, up ? r.z1 : ray.iz);
+    } else {
+        const double x = (ray.ox + ray.t * ray.dx - x_min_) * per_cell_x_;
+        ray.iz = up ? r.z1 + 1 : r.z0 - 1;
+        ray.ix = std::clamp(static_cast<int>(x), right ? ray.ix : r.x0, right ? r.x1 : ray.ix);
+    }
+}
+
+/// Takes a ray that left the period at a side into the next image; false after too many sides.
 bool SegmentCaster::cross_side(Ray& ray) const {
     if (++ray.folds > most_folds) return false;
     const bool right = ray.ix >= nx_;
@@ -139,55 +175,54 @@ bool SegmentCaster::cross_side(Ray& ray) const {
     return true;
 }
 
-void SegmentCaster::test_runs(const Ray& ray, const Room& room, Best& best) const {
-    const Run* const end = runs_.data() + room.end;
-    for (const Run* run = runs_.data() + room.first; run != end; ++run) {
+/// Tests the runs of one cell, of which `run` is the first.
+inline void SegmentCaster::test_runs(const Ray& ray, const Run* run, Best& best) const {
+    for (;; ++run) {
         // From behind nothing is hit. The margin leaves what is level with the ray to the test
         // below.
         const auto facing = [&](const std::array<double, 2>& n) {
             return n[0] * ray.dx + n[1] * ray.dz;
         };
-        if (facing(run->normal_first) > 1e-9 && facing(run->normal_last) > 1e-9) continue;
-        std::array<double, 8> side;
-        for (int k = 0; k < 8; ++k)
-            side[k] = ray.dx * (run->z[k] - ray.oz) - ray.dz * (run->x[k] - ray.ox);
-        unsigned right = 0; // bit k: vertex k lies on the right of the ray
-        for (int k = 0; k < 8; ++k)
-            right |= static_cast<unsigned>(side[k] < ray.positive) << k;
-        // From the gas the ray sees a segment's start on its right and its end on its left.
-        for (unsigned crossed = right & ~(right >> 1) & 0x7fu; crossed != 0;
-             crossed &= crossed - 1) {
-            const int k = __builtin_ctz(crossed);
-            test_segment(ray, *run, k, side[k] / (side[k] - side[k + 1]), best);
+        if (!(facing(run->normal_first) > 1e-9 && facing(run->normal_last) > 1e-9)) {
+            alignas(16) std::array<double, 8> side;
+            const unsigned right =
+                vertices_on_right(run->x.data(), run->z.data(), {ray.ox, ray.oz}, {ray.dx, ray.dz},
+                                  ray.positive, side.data());
+            // From the gas the ray sees a segment's start on its right and its end on its left.
+            for (unsigned crossed = right & ~(right >> 1) & 0x7fu; crossed != 0;
+                 crossed &= crossed - 1) {
+                const int k = __builtin_ctz(crossed);
+                test_segment(ray, *run, k, side[k] / (side[k] - side[k + 1]), best);
+            }
         }
+        if (run->last) return;
     }
 }
 
-void SegmentCaster::test_segment(const Ray& ray, const Run& run, int k, double share,
-                                 Best& best) const {
+inline void SegmentCaster::test_segment(const Ray& ray, const Run& run, int k, double share,
+                                        Best& best) const {
     const int element = run.element + k;
     if (element == ray.from && ray.folds == 0) return;
     const double ta = ray.dx * (run.x[k] - ray.ox) + ray.dz * (run.z[k] - ray.oz);
     const double tb = ray.dx * (run.x[k + 1] - ray.ox) + ray.dz * (run.z[k + 1] - ray.oz);
-    const double t = ta + share * (tb - ta);
-    if (t < -slack_ || t >= best.t) return;
-    if (t < slack_ && ray.from >= 0 && behind_at_start(ray.from, element)) return;
-    best = {t, share, element};
+    const double t = (ta + share * (tb - ta)) * ray.inverse_square;
+    if (t < -ray.slack || t >= best.t) return;
+    if (t < ray.slack && ray.from >= 0 && behind_at_start(ray.from, element)) return;
+    best = {t, share, &run, k};
 }
 
-Hit SegmentCaster::finish_hit(const Ray& ray, const Best& best) const {
-    Hit hit;
+/// `hit` holds the origin and direction of the ray; so it does in finish_open.
+void SegmentCaster::finish_hit(const Ray& ray, const Best& best, Hit& hit) const {
+    const Run& run = *best.run;
+    const int k = best.k;
     hit.kind = Hit::Kind::surface;
-    hit.element = best.element;
-    const double t = std::max(best.t, 0.0);
-    hit.distance = t * ray.per_length;
-    const auto& e = ends_[best.element];
-    const double x = e[0] + best.share * (e[2] - e[0]);
-    hit.point = Vec3(std::clamp(x, x_min_, x_min_ + width_), ray.y + t * ray.dy,
-                     e[1] + best.share * (e[3] - e[1]));
-    hit.direction = ray.direction;
+    hit.element = run.element + k;
+    hit.distance = std::max(best.t, 0.0);
+    const double x = run.x[k] + best.share * (run.x[k + 1] - run.x[k]);
+    hit.point =
+        Vec3(std::clamp(x, x_min_, x_min_ + width_), hit.point.y + hit.distance * hit.direction.y,
+             run.z[k] + best.share * (run.z[k + 1] - run.z[k]));
     if (ray.flipped) hit.direction.x = -hit.direction.x;
-    return hit;
 }
 
 /// Normal (not unit) of the segment at one end of `element`; at a mirror side its own image.
@@ -226,50 +261,68 @@ bool SegmentCaster::starts_in_joint(const Vec3& origin, const Vec3& direction, i
     return false;
 }
 
-Hit SegmentCaster::finish_open(Ray& ray) const {
-    Hit hit;
+void SegmentCaster::finish_open(Ray& ray, Hit& hit) const {
     hit.kind = Hit::Kind::open;
-    const double t = std::max(0.0, (z_open_ - ray.oz) / ray.dz);
-    fold_into_period(ray, t);
-    hit.distance = t * ray.per_length;
-    const double x = ray.ox + t * ray.dx;
-    hit.point = Vec3(std::clamp(x, x_min_, x_min_ + width_), ray.y + t * ray.dy, z_open_);
-    hit.direction = ray.direction;
+    hit.distance = std::max(0.0, (z_open_ - ray.oz) / ray.dz);
+    fold_into_period(ray, hit.distance);
+    const double x = ray.ox + hit.distance * ray.dx;
+    hit.point = Vec3(std::clamp(x, x_min_, x_min_ + width_),
+                     hit.point.y + hit.distance * hit.direction.y, z_open_);
     if (ray.flipped) hit.direction.x = -hit.direction.x;
-    return hit;
 }
 
 Hit SegmentCaster::trace(const Vec3& origin, const Vec3& direction, int from_element) const {
-    Hit lost;
-    lost.kind = Hit::Kind::lost;
-    lost.point = origin;
-    lost.direction = direction;
-    const double in_plane = std::sqrt(direction.x * direction.x + direction.z * direction.z);
-    if (!(in_plane > 1e-12)) return lost; // along y: it meets nothing and never gets out
-    if (from_element >= 0 && starts_in_joint(origin, direction, from_element, lost)) return lost;
+    Hit hit;
+    hit.kind = Hit::Kind::lost;
+    hit.point = origin;
+    hit.direction = direction;
+    const double square = direction.x * direction.x + direction.z * direction.z;
+    if (!(square > 1e-24)) return hit; // along y: it meets nothing and never gets out
+    if (from_element >= 0 && starts_in_joint(origin, direction, from_element, hit)) return hit;
     Ray ray;
     ray.ox = origin.x;
     ray.oz = origin.z;
-    ray.dx = direction.x / in_plane;
-    ray.dz = direction.z / in_plane;
-    ray.y = origin.y;
-    ray.dy = direction.y / in_plane;
-    ray.per_length = 1.0 / in_plane;
+    ray.dx = direction.x;
+    ray.dz = direction.z;
+    ray.inverse_square = 1.0 / square;
+    ray.slack = slack_ * std::sqrt(square) * ray.inverse_square;
     ray.inverse_x = safe_inverse(ray.dx);
     ray.inverse_z = safe_inverse(ray.dz);
     ray.positive = 0;
     ray.from = from_element;
-    ray.direction = direction;
-    if (!enter(ray)) return ray.dz > 0 ? finish_open(ray) : lost;
+    if (!enter(ray)) {
+        if (ray.dz > 0) finish_open(ray, hit);
+        return hit;
+    }
     Best best;
     for (;;) {
-        const Room& room = rooms_[room_of_[ray.iz * nx_ + ray.ix]];
-        if (room.end > room.first) test_runs(ray, room, best);
-        const double tx = ((ray.rightwards() ? room.x_high : room.x_low) - ray.ox) * ray.inverse_x;
-        const double tz = ((ray.upwards() ? room.z_high : room.z_low) - ray.oz) * ray.inverse_z;
-        if (best.element >= 0 && best.t <= std::min(tx, tz) + slack_) return finish_hit(ray, best);
-        if (!leave(ray, room, tx, tz)) return lost;
-        if (ray.iz >= nz_) return finish_open(ray);
+        const int content = content_[ray.iz * nx_ + ray.ix];
+        const bool right = ray.rightwards(), up = ray.upwards();
+        double tx, tz;
+        if (content >= 0) {
+            test_runs(ray, &runs_[content], best);
+            tx = (x_min_ + (ray.ix + right) * cell_x_ - ray.ox) * ray.inverse_x;
+            tz = (z_min_ + (ray.iz + up) * cell_z_ - ray.oz) * ray.inverse_z;
+        } else {
+            const Room& room = rooms_[-1 - content];
+            tx = ((right ? room.x_high : room.x_low) - ray.ox) * ray.inverse_x;
+            tz = ((up ? room.z_high : room.z_low) - ray.oz) * ray.inverse_z;
+        }
+        ray.t = std::min(tx, tz);
+        if (best.run && best.t <= ray.t + ray.slack) {
+            finish_hit(ray, best, hit);
+            return hit;
+        }
+        if (content >= 0)
+            cross_cell(ray, tx < tz);
+        else
+            cross_room(ray, rooms_[-1 - content].cells, tx < tz);
+        if ((ray.ix < 0 || ray.ix >= nx_) && !cross_side(ray)) return hit;
+        if (ray.iz < 0) return hit;
+        if (ray.iz >= nz_) {
+            finish_open(ray, hit);
+            return hit;
+        }
     }
 }
 

@@ -28,19 +28,19 @@ public:
 private:
     /// Up to seven consecutive elements of a chain: their eight vertices, and the cone of their
     /// normals. Unused places repeat the last vertex.
-    struct Run {
+    struct alignas(64) Run {
         std::array<double, 8> x, z;
         std::array<double, 2> normal_first, normal_last;
         int element; ///< of the first two vertices
+        bool last;   ///< of its cell
     };
     struct Rectangle { ///< inclusive ranges of cells
         int x0, x1, z0, z1;
     };
-    /// What a ray crosses in one step: a cell with segments, or a rectangle of empty cells.
+    /// A rectangle of empty cells, which a ray crosses in one step.
     struct Room {
         double x_low, x_high, z_low, z_high; ///< [nm]
         Rectangle cells;
-        int first = 0, end = 0; ///< range in `runs_`
     };
     struct Ray;  // the ray in the frame of the image it is in
     struct Best; // nearest crossing so far
@@ -52,18 +52,19 @@ private:
     void find_rectangles();
     Rectangle grow(int ix, int iz, const std::vector<int>& sums) const;
     std::vector<int> occupancy_sums() const;
-    bool occupied(int cell) const;
+    bool occupied(int cell) const { return content_[cell] >= 0; }
     Room room(const Rectangle&) const;
     std::vector<int> cells_by_clearance() const;
 
     bool enter(Ray&) const;
     void fold_into_period(Ray&, double t) const;
-    bool leave(Ray&, const Room&, double tx, double tz) const;
+    void cross_cell(Ray&, bool aside) const;
+    void cross_room(Ray&, const Rectangle&, bool aside) const;
     bool cross_side(Ray&) const;
-    void test_runs(const Ray&, const Room&, Best&) const;
+    void test_runs(const Ray&, const Run*, Best&) const;
     void test_segment(const Ray&, const Run&, int k, double share, Best&) const;
-    Hit finish_hit(const Ray&, const Best&) const;
-    Hit finish_open(Ray&) const;
+    void finish_hit(const Ray&, const Best&, Hit&) const;
+    void finish_open(Ray&, Hit&) const;
     std::array<double, 2> normal_beyond(int element, int end) const;
     bool concave_at(int element, int end) const;
     bool behind_at_start(int from, int element) const {
@@ -81,7 +82,7 @@ private:
     std::vector<std::array<double, 4>> ends_;  ///< per element: ax, az, bx, bz
     std::vector<std::array<bool, 2>> concave_; ///< per element: at its start, at its end
     std::vector<std::array<int, 2>> joined_;   ///< element before and after; -1 at a mirror side
-    std::vector<int> room_of_;                 ///< per cell
+    std::vector<int> content_; ///< per cell: its first run, or if empty -1 - its room
     std::vector<Room> rooms_;
     std::vector<Run> runs_; ///< copies, cell after cell
 };

@@ -8,6 +8,10 @@
 
 namespace rille::geometry {
 
+namespace {
+constexpr int nothing = std::numeric_limits<int>::min(); ///< content of a cell not yet known
+} // namespace
+
 void SegmentCaster::choose_grid(const Surface& surface) {
     double low = std::numeric_limits<double>::infinity(), high = -low, length = 0;
     for (const auto& e : ends_) {
@@ -56,15 +60,11 @@ void SegmentCaster::fill_cells(const Surface& surface) {
                     lists[static_cast<std::size_t>(iz) * nx_ + ix].push_back(e);
             }
     }
-    room_of_.assign(lists.size(), -1);
-    for (int c = 0; c < nx_ * nz_; ++c) {
+    content_.assign(lists.size(), nothing);
+    for (std::size_t c = 0; c < lists.size(); ++c) {
         if (lists[c].empty()) continue;
-        Room own = room({c % nx_, c % nx_, c / nx_, c / nx_});
-        own.first = static_cast<int>(runs_.size());
+        content_[c] = static_cast<int>(runs_.size());
         add_runs(lists[c], surface);
-        own.end = static_cast<int>(runs_.size());
-        room_of_[c] = static_cast<int>(rooms_.size());
-        rooms_.push_back(own);
     }
 }
 
@@ -73,14 +73,7 @@ SegmentCaster::Room SegmentCaster::room(const Rectangle& r) const {
             x_min_ + (r.x1 + 1) * cell_x_,
             z_min_ + r.z0 * cell_z_,
             z_min_ + (r.z1 + 1) * cell_z_,
-            r,
-            0,
-            0};
-}
-
-bool SegmentCaster::occupied(int cell) const {
-    const int r = room_of_[cell];
-    return r >= 0 && rooms_[r].end > rooms_[r].first;
+            r};
 }
 
 /// Splits a cell's elements, in ascending order, into runs that share vertices.
@@ -93,11 +86,13 @@ void SegmentCaster::add_runs(const std::vector<int>& elements, const Surface& su
         runs_.push_back(make_run(elements[i], static_cast<int>(end - i)));
         i = end;
     }
+    runs_.back().last = true;
 }
 
 SegmentCaster::Run SegmentCaster::make_run(int first, int count) const {
     Run run;
     run.element = first;
+    run.last = false;
     double nx = 0, nz = 0;
     for (int k = 0; k < 8; ++k) {
         const auto& e = ends_[first + std::min(k, count - 1)];
@@ -187,12 +182,12 @@ SegmentCaster::Rectangle SegmentCaster::grow(int ix, int iz, const std::vector<i
 void SegmentCaster::find_rectangles() {
     const std::vector<int> sums = occupancy_sums();
     for (const int c : cells_by_clearance()) {
-        if (room_of_[c] >= 0) continue;
+        if (content_[c] != nothing) continue;
         const Rectangle r = grow(c % nx_, c / nx_, sums);
+        const int content = -1 - static_cast<int>(rooms_.size());
         for (int iz = r.z0; iz <= r.z1; ++iz)
             for (int ix = r.x0; ix <= r.x1; ++ix)
-                if (room_of_[iz * nx_ + ix] < 0)
-                    room_of_[iz * nx_ + ix] = static_cast<int>(rooms_.size());
+                if (content_[iz * nx_ + ix] == nothing) content_[iz * nx_ + ix] = content;
         rooms_.push_back(room(r));
     }
 }
