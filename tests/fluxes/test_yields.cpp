@@ -86,7 +86,7 @@ int sputter_misses(Change change) {
 
 // Oracle: printed thresholds and yields of 15 ion-target pairs at five energies.
 // Source: Yamamura & Tawara, At. Data Nucl. Data Tables 62, 149 (1996), with the erratum; formula
-// and elements read in a transcription, the values computed independently from the formula.
+// and elements read in teaching notes, the values computed independently from the formula.
 // Tolerance: half of the last printed digit.
 TEST_CASE("Yamamura-Tawara yields of fifteen pairs", "[yields]") {
     CHECK(sputter_misses([](YamamuraTawaraLaw&) {}) == 0);
@@ -256,7 +256,7 @@ TEST_CASE("Peak of the peaked angular form", "[yields]") {
 }
 
 // Oracle: printed f, optimum and factors of Ar on six targets.
-// Source: Yamamura, Radiat. Eff. 80, 57 (1984), formula read in a transcription; computed.
+// Source: Yamamura, Radiat. Eff. 80, 57 (1984), formula read in teaching notes; computed.
 // Tolerance: half of the last printed digit, plus what half a digit of the rounded atomic spacing
 // R0 changes: 5e-4 relative, 1.7e-3 at 80 deg.
 TEST_CASE("Angular law of heavy ions", "[yields]") {
