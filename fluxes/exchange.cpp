@@ -4,8 +4,8 @@
 #include "fluxes/aim.hpp"
 #include "fluxes/krylov.hpp"
 #include "fluxes/launch.hpp"
+#include "fluxes/open_sky.hpp"
 #include "fluxes/sampling.hpp"
-#include "fluxes/sky.hpp"
 #include "geometry/check.hpp"
 
 #include <tbb/blocked_range.h>
@@ -34,7 +34,7 @@ struct Exchange::Tracing {
     const geometry::Surface& surface;
     const geometry::RayCaster& caster;
     const Options& options;
-    std::optional<Sky> sky;
+    std::optional<OpenSky> sky;
     std::optional<OpeningAims> aims;
 
     ScrambledPoints points(int element, int batch) const {
@@ -64,13 +64,14 @@ void Exchange::Tracing::extruded(int element) {
     const Vec3 a = surface.vertices[surface.corners[element][0]];
     const Vec3 b = surface.vertices[surface.corners[element][1]];
     const double psi = std::atan2(surface.normal[element].x, surface.normal[element].z);
-    const bool covered = sky->covers(element);
+    const bool covered = sky->one_interval(element);
+    const double normal = covered ? sky->normal_angle(element) : psi; // unwrapped
     double skip_from = 1, skip = 0;
     if (covered) {
-        const SkyInterval common = sky->common(element);
-        if (!common.dark()) {
-            skip_from = std::sin(std::max(common.left - psi, -0.5 * pi));
-            skip = std::max(0.0, std::sin(std::min(common.right - psi, 0.5 * pi)) - skip_from);
+        const Visible common = sky->common(element);
+        if (common.low < common.high) {
+            skip_from = std::sin(common.low - normal);
+            skip = std::max(0.0, std::sin(common.high - normal) - skip_from);
         }
     }
     for (int batch = 0; batch < batches; ++batch) {
@@ -86,7 +87,7 @@ void Exchange::Tracing::extruded(int element) {
         sort(element, batch);
         const double hits = exchange.hits_[std::size_t(element) * batches + batch];
         exchange.batch_direct_[batch][element] =
-            covered ? 0 : 1 - hits / exchange.per_batch_; // not on the open chain: as sampled
+            covered ? 0 : 1 - hits / exchange.per_batch_; // voids, floating pieces: as sampled
     }
     exchange.direct_[element] = covered ? std::clamp(sky->cosine_flux(element), 0.0, 1.0) : 0;
     for (int batch = 0; batch < batches; ++batch) {

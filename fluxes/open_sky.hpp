@@ -40,6 +40,19 @@ public:
     /// hides is left out: it depends on the normal, which the caller may turn.
     std::vector<Visible> visible(int element, double part) const;
 
+    /// Whether element e is open to the source and only the open surface itself hides sky from it:
+    /// then cosine_flux and common are exact.
+    bool one_interval(int element) const { return floating_.empty() && position_[element] >= 0; }
+    /// Angle of the element's normal [rad], unwrapped along the open surface like all horizons.
+    double normal_angle(int element) const { return normal_[position_[element]]; }
+    /// Mean over the element of the cosine-law flux from the sky relative to the open flux, for
+    /// one_interval(e): (sin(high - psi) - sin(low - psi)) / 2, psi the element's normal, at three
+    /// Gauss points (smooth along a segment but for kinks where the vertex on the horizon changes).
+    double cosine_flux(int element) const;
+    /// Sky that every point of the element sees, for one_interval(e): towards the end of a segment
+    /// both horizons turn left, so its start decides the left and its end the right one.
+    Visible common(int element) const;
+
     bool floating_pieces() const { return !floating_.empty(); }
 
 private:
@@ -60,6 +73,7 @@ private:
     struct Segment {
         Point a, b;
     };
+    Visible seen_over(int element, double part_low, double part_high) const;
 
     void unroll(const geometry::Domain&, const geometry::Surface&);
     void unwrap_normals();
