@@ -69,7 +69,8 @@ Feature hole(double aspect) {
     f.domain.cells_x = f.domain.cells_y = 30;
     f.depth = aspect * diameter;
     constexpr int around = 32;
-    // Perimeter over area is 0.16 % above the circle's, the flux changes by up to a third of that.
+    // Fluxes are constant over a ring a tenth of a diameter high and the circle has 32 sides: on
+    // such a surface the limit of many rays lies 0.05 to 0.1 % off the table (measured by halving).
     f.facets = 5e-4;
     const double step = 2 * std::acos(-1.0) / around;
     const double r = 0.5 * diameter * std::sqrt(step / std::sin(step));
