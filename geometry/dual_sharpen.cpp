@@ -16,7 +16,8 @@ constexpr double third_cosine = 0.707;  ///< 45 deg to both faces of an edge: a 
 constexpr double reach = 4.6;           ///< [cells] faces are fitted within
 constexpr double undisturbed = 1.8;     ///< [cells] of an element's centre from the other face
 constexpr double lateral = 0.8;         ///< [cells] weight along an edge: it may be curved
-constexpr double largest_spread = 0.35; ///< of the angle between faces; more is a round surface
+constexpr double least_weight = 1.0;    ///< undisturbed elements that a face needs
+constexpr double largest_spread = 0.10; ///< of the angle between faces; more is a round surface
 
 /// A fitted face; `point` relative to the vertex at hand, in cells.
 struct Face {
@@ -291,7 +292,7 @@ private:
             if (s.weight > 0.1 && cosine < std::cos(largest_spread * angle)) return false;
         }
         for (int f = 0; f < solid.count; ++f)
-            if (!(solid.face[f].weight > 1e-9)) return false;
+            if (!(solid.face[f].weight > least_weight)) return false;
         return true;
     }
 
