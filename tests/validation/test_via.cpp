@@ -79,7 +79,7 @@ TEST_CASE("a vertical beam etches a via straight down", "[validation][via]") {
         CAPTURE(shape.x, shape.y, depth);
         CHECK(std::fabs(depth - 24.3) < 0.05 * cell);
         CHECK(std::fabs(depth - 1.02 * 24.3) > 0.05 * cell);
-        for (const double z : {-6.0, -12.0, -18.0}) {
+        for (const double z : {-5.0, -9.0, -13.0}) {
             const auto cd = geometry::cd_at(t.c.domain, surface, site, z);
             const auto area = geometry::cd_area_at(t.c.domain, surface, site, z);
             const auto cd_y = geometry::cd_y_at(t.c.domain, surface, site, z);
