@@ -481,7 +481,9 @@ AdvanceReport advance(Front& front, const Surface& surface, const NormalRates& r
     RILLE_CHECK(limits.max_share > 0 && limits.max_share <= 1 && limits.max_move > 0, "limits");
     const double h = front.domain().spacing;
     AdvanceReport report = Advance(front, surface, rates, stack, films, growth_film, limits).run();
-    if (edge_distance(front.band()) < (band_half_width - edge_margin) * h)
+    // Contouring in three dimensions needs the diagonal neighbours of the front as well.
+    if (!front.domain().extruded() ||
+        edge_distance(front.band()) < (band_half_width - edge_margin) * h)
         front.rebuild();
     if (lowest_contour(front.band()) < z_floor + 2 * h)
         throw NumericsError("the front comes within two cells of the lower end of the domain");

@@ -129,14 +129,33 @@ double eikonal(const Band& band, std::size_t c, double unknown) {
     return std::max(u, n > 0 ? terms[0].least : u);
 }
 
+/// Steps (0 to 2, else 3) from each cell to the nearest one whose neighbour has the other sign.
+/// Contouring needs all cells within two steps, whatever phi says where it is no distance.
+std::vector<char> steps_to_contour(const Band& band) {
+    std::vector<char> steps(band.size(), 3);
+    for (int step = 0; step < 3; ++step) {
+        const std::vector<char> before = steps;
+        for_ranges(band.size(), [&](std::size_t begin, std::size_t end) {
+            for (std::size_t c = begin; c < end; ++c)
+                for (const int n : band.neighbour[c])
+                    if (n >= 0 && before[c] == 3 &&
+                        (step == 0 ? (band.phi[n] < 0) != (band.phi[c] < 0)
+                                   : before[n] == step - 1))
+                        steps[c] = static_cast<char>(step);
+        });
+    }
+    return steps;
+}
+
 /// Missing neighbours of cells within the half-width, sorted, with the sign of the cell they touch.
 std::vector<std::pair<Band::Cell, double>> missing_cells(const Band& band, double reach) {
     static constexpr int step[6][3] = {{-1, 0, 0}, {1, 0, 0},  {0, -1, 0},
                                        {0, 1, 0},  {0, 0, -1}, {0, 0, 1}};
     const Domain& d = band.domain;
+    const std::vector<char> steps = steps_to_contour(band);
     std::vector<std::pair<Band::Cell, double>> out;
     for (std::size_t c = 0; c < band.size(); ++c) {
-        if (std::fabs(band.phi[c]) > reach)
+        if (std::fabs(band.phi[c]) > reach && steps[c] > 1)
             continue;
         for (int side = 0; side < 6; ++side) {
             if (band.neighbour[c][side] >= 0 || (d.extruded() && (side == 2 || side == 3)))
@@ -157,7 +176,7 @@ std::vector<std::pair<Band::Cell, double>> missing_cells(const Band& band, doubl
 }
 
 /// Adds one layer of cells around those within `reach` and gives it eikonal values. Returns whether
-/// some of it lies within reach itself.
+/// there was any to add.
 bool add_layer(Band& band, double reach) {
     const auto fresh = missing_cells(band, reach);
     if (fresh.empty())
@@ -196,8 +215,7 @@ bool add_layer(Band& band, double reach) {
             grown.phi[added[a]] = std::copysign(value[a], grown.phi[added[a]]);
     }
     band = std::move(grown);
-    return std::any_of(added.begin(), added.end(),
-                       [&](int c) { return std::fabs(band.phi[c]) <= reach; });
+    return true;
 }
 
 } // namespace
@@ -317,9 +335,10 @@ void retopologise(Band& band, int layers) {
     const double reach = band_half_width * band.domain.spacing;
     for (int layer = 0; layer < layers && add_layer(band, reach); ++layer) {
     }
+    const std::vector<char> steps = steps_to_contour(band);
     std::size_t kept = 0;
     for (std::size_t c = 0; c < band.size(); ++c) {
-        if (std::fabs(band.phi[c]) > reach)
+        if (std::fabs(band.phi[c]) > reach && steps[c] > 2)
             continue;
         band.cells[kept] = band.cells[c];
         band.phi[kept++] = band.phi[c];

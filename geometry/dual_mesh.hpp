@@ -4,7 +4,7 @@
 // for every separate sheet (loop of crossed edges) that passes through it, so the mesh is manifold.
 #pragma once
 
-#include "geometry/band.hpp"
+#include "geometry/extract_surface.hpp"
 
 #include <array>
 #include <cstdint>
@@ -75,6 +75,6 @@ void place_vertices(const Band&, DualMesh&);
 
 /// Moves vertices near sharp edges and corners onto the planes fitted to either side, where
 /// one-sided normals differ by more than 30 degrees.
-void sharpen(const Band&, DualMesh&);
+void sharpen(const Band&, DualMesh&, Edges);
 
 } // namespace rille::geometry

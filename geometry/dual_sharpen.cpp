@@ -16,7 +16,13 @@ constexpr double third_cosine = 0.707;  ///< 45 deg to both faces of an edge: a 
 constexpr double reach = 4.6;           ///< [cells] faces are fitted within
 constexpr double undisturbed = 1.8;     ///< [cells] of an element's centre from the other face
 constexpr double lateral = 0.8;         ///< [cells] weight along an edge: it may be curved
-constexpr double largest_spread = 0.35; ///< of the angle between faces; more is a round surface
+
+/// What a fit must show before it counts as an edge.
+struct Demands {
+    double least_weight;   ///< undisturbed elements that a face needs
+    double largest_spread; ///< of the angle between faces; more is a round surface
+};
+constexpr Demands drawn{1e-9, 0.35}, etched{0.5, 0.15};
 
 /// A fitted face; `point` relative to the vertex at hand, in cells.
 struct Face {
@@ -58,8 +64,8 @@ struct LocalSolid {
 
 class Sharpener {
 public:
-    Sharpener(const Band& band, DualMesh& mesh)
-        : band_(band), mesh_(mesh), h_(band.domain.spacing),
+    Sharpener(const Band& band, DualMesh& mesh, const Demands& demands)
+        : demands_(demands), band_(band), mesh_(mesh), h_(band.domain.spacing),
           periodic_(band.domain.sides == Sides::periodic) {}
 
     void run() {
@@ -214,7 +220,7 @@ private:
     }
 
     /// Splits the samples into two or three faces; false where the surface is smooth or round.
-    static bool find_faces(std::vector<Sample>& samples, LocalSolid& solid) {
+    bool find_faces(std::vector<Sample>& samples, LocalSolid& solid) const {
         if (samples.size() < 3) return false;
         int seed[3] = {0, 0, -1};
         double least = 1;
@@ -256,8 +262,8 @@ private:
         }
     }
 
-    static bool split(std::vector<Sample>& samples, const int (&seed)[3], int count,
-                      LocalSolid& solid) {
+    bool split(std::vector<Sample>& samples, const int (&seed)[3], int count,
+                      LocalSolid& solid) const {
         solid.count = count;
         for (Sample& s : samples) {
             double nearest = -2;
@@ -278,7 +284,7 @@ private:
         return distinct(samples, solid);
     }
 
-    static bool distinct(const std::vector<Sample>& samples, const LocalSolid& solid) {
+    bool distinct(const std::vector<Sample>& samples, const LocalSolid& solid) const {
         double angle = 4;
         for (int a = 0; a < solid.count; ++a)
             for (int b = 0; b < a; ++b)
@@ -288,10 +294,10 @@ private:
         if (angle < std::acos(edge_cosine)) return false;
         for (const Sample& s : samples) {
             const double cosine = s.normal.dot(solid.face[s.face].normal);
-            if (s.weight > 0.1 && cosine < std::cos(largest_spread * angle)) return false;
+            if (s.weight > 0.1 && cosine < std::cos(demands_.largest_spread * angle)) return false;
         }
         for (int f = 0; f < solid.count; ++f)
-            if (!(solid.face[f].weight > 1e-9)) return false;
+            if (!(solid.face[f].weight > demands_.least_weight)) return false;
         return true;
     }
 
@@ -369,6 +375,7 @@ private:
         return q;
     }
 
+    const Demands demands_;
     const Band& band_;
     DualMesh& mesh_;
     double h_;
@@ -380,8 +387,8 @@ private:
 
 } // namespace
 
-void sharpen(const Band& band, DualMesh& mesh) {
-    if (!mesh.quads.empty()) Sharpener(band, mesh).run();
+void sharpen(const Band& band, DualMesh& mesh, Edges edges) {
+    if (!mesh.quads.empty()) Sharpener(band, mesh, edges == Edges::drawn ? drawn : etched).run();
 }
 
 } // namespace rille::geometry

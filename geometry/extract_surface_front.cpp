@@ -5,7 +5,7 @@
 namespace rille::geometry {
 
 Surface extract_surface(const Front& front) {
-    return extract_surface(front.band());
+    return extract_surface(front.band(), Edges::etched);
 }
 
 } // namespace rille::geometry

@@ -68,7 +68,7 @@ void add_vertices(const Band& band, const DualMesh& mesh, Surface& s) {
     });
 }
 
-void measure(Surface& s) {
+void measure(const DualMesh& mesh, const std::vector<int>& origin, double h, Surface& s) {
     const std::size_t size = s.corners.size();
     s.centre.resize(size);
     s.normal.resize(size);
@@ -81,43 +81,33 @@ void measure(Surface& s) {
             const Vec3 across = (c - a).cross(d - b) * 0.5;
             s.centre[n] = v[2] == v[3] ? (a + b + c) / 3.0 : (a + b + c + d) * 0.25;
             s.area[n] = across.length();
-            s.normal[n] = across / s.area[n];
+            if (s.area[n] > 1e-12 * h * h) {
+                s.normal[n] = across / s.area[n];
+            } else { // collapsed: the direction of its grid edge
+                s.normal[n] = Vec3(0, 0, 0);
+                const DualQuad& quad = mesh.quads[origin[n]];
+                s.normal[n][quad.axis] = quad.up ? 1 : -1;
+            }
         }
     });
 }
 
-/// Where the mesh is squeezed, next to a sharpened edge, a quad may be folded or empty. Turns
-/// corners so that both facets look out of the solid, if either diagonal does that. Drops elements
-/// without area and those turned over, which lie under their neighbours: rays cannot start there.
-void settle_facets(const DualMesh& mesh, double h, std::vector<int>& origin, Surface& s) {
+/// Where the mesh is squeezed, next to a sharpened edge, a quad may be folded. Turns its corners so
+/// that both facets look out of the solid, if either diagonal does that.
+void settle_facets(Surface& s) {
     const auto worst = [&](const std::array<int, 4>& quad) {
         const Vec3 a = facet(s.vertices, quad, 0).cross(), b = facet(s.vertices, quad, 1).cross();
         const double length = (a + b).length();
         return length > 0 ? std::min(a.dot(a + b), b.dot(a + b)) / length : 0.0;
     };
-    const double empty = 1e-7 * h * h, turned_over = -0.5;
-    std::vector<char> kept(s.corners.size());
     over_ranges(s.corners.size(), grain, [&](std::size_t first, std::size_t last) {
         for (std::size_t n = first; n < last; ++n) {
             std::array<int, 4>& quad = s.corners[n];
-            const Vec3 cross =
-                facet(s.vertices, quad, 0).cross() + facet(s.vertices, quad, 1).cross();
-            const DualQuad& edge = mesh.quads[origin[n]];
-            const double along = edge.up ? cross[edge.axis] : -cross[edge.axis];
-            kept[n] = cross.length() > 2 * empty && along > turned_over * cross.length();
-            if (!kept[n] || quad[2] == quad[3] || worst(quad) > 0) continue;
+            if (quad[2] == quad[3] || worst(quad) > 0) continue;
             const std::array<int, 4> turned{quad[1], quad[2], quad[3], quad[0]};
             if (worst(turned) > worst(quad)) quad = turned;
         }
     });
-    std::size_t count = 0;
-    for (std::size_t n = 0; n < kept.size(); ++n)
-        if (kept[n]) {
-            s.corners[count] = s.corners[n];
-            origin[count++] = origin[n];
-        }
-    s.corners.resize(count);
-    origin.resize(count);
 }
 
 /// Numbers the parts; 0 is the uppermost that covers the period with the gas above.
@@ -143,10 +133,10 @@ void number_chains(const DualMesh& mesh, const std::vector<int>& origin, const D
 
 } // namespace
 
-Surface extract_full(const Band& band) {
+Surface extract_full(const Band& band, Edges edges) {
     DualMesh mesh = dual_topology(band);
     place_vertices(band, mesh);
-    sharpen(band, mesh);
+    sharpen(band, mesh, edges);
     Surface s;
     add_vertices(band, mesh, s);
     std::vector<int> origin(mesh.quads.size());
@@ -154,8 +144,8 @@ Surface extract_full(const Band& band) {
         origin = clip_to_period(band.domain, s);
     else
         std::iota(origin.begin(), origin.end(), 0);
-    settle_facets(mesh, band.domain.spacing, origin, s);
-    measure(s);
+    settle_facets(s);
+    measure(mesh, origin, band.domain.spacing, s);
     number_chains(mesh, origin, band.domain, s);
     return s;
 }

@@ -1,0 +1,34 @@
+#!/usr/bin/env bash
+# SPDX-License-Identifier: Apache-2.0
+# The examples run to their end at reduced size and give sensible results.
+set -uo pipefail
+rille=$1
+root=$(cd "$(dirname "$0")/../.." && pwd)
+work=$(mktemp -d)
+trap 'rm -rf "$work"' EXIT
+
+# contact-via: the oxide thinned, so that a coarse run takes seconds.
+"$rille" run "$root/examples/contact-via/case.yaml" --set 'spacing=8 nm' --set 'mask.thickness=64 nm' \
+    --set 'stack.oxide.thickness=64 nm' --set 'sampling={rays_per_point: 32, ions_per_species: 8192}' \
+    -o "$work/via" --quiet || { echo "FAILED: contact-via stops with status $?"; exit 1; }
+python3 - "$work/via" <<'P' || exit 1
+import json, sys
+out = sys.argv[1]
+record = json.load(open(out + "/run.json"))
+metrics = json.load(open(out + "/metrics.json"))
+value = {m["name"]: m["value"] for m in metrics["metrics"]}
+
+def check(holds, what):
+    if not holds:
+        sys.exit("FAILED: contact-via: " + what)
+
+check(record["status"] in ("done", "not cleared"), record["status"])
+numerics = record["numerics"]
+check(numerics["lost_rays"] <= 1e-6 * numerics["rays"], "lost rays: %s" % numerics["lost_rays"])
+check(record["steps"][0]["ended_by"].startswith("reached"), record["steps"][0]["ended_by"])
+check(60 < value["depth centre"] < 90, "depth %s" % value["depth centre"])
+check(50 < value["top cd"] < 72, "top CD %s" % value["top cd"])
+check(abs(value["top cd"] - value["top cd y"]) < 2, "CD x %s, CD y %s, a quarter of a cell apart"
+      % (value["top cd"], value["top cd y"]))
+check(40 < value["mask left"] < 64, "mask left %s" % value["mask left"])
+P
