@@ -89,8 +89,8 @@ TEST_CASE("direct flux on the initial front of a trench", "[validation][flux]") 
         if (std::fabs(x) < 0.5 * width - h && z < h)
             floor = std::max(floor, std::fabs(flux[e] / 50 / floor_flux(x, depth, sigma) - 1));
         if (std::fabs(s.normal[e].x) > 0.9 && z > 2 * h && z < depth - 2 * h)
-            wall = std::max(
-                wall, std::fabs(flux[e] / 50 / wall_flux(0, width / (depth - z), sigma) - 1));
+            wall = std::max(wall,
+                            std::fabs(flux[e] / 50 / wall_flux(0, width / (depth - z), sigma) - 1));
     }
     WARN(cells << " cells: floor off by " << 100 * floor << " %, wall by " << 100 * wall << " %");
     CHECK(floor < 0.2 / cells);
