@@ -96,6 +96,7 @@ struct Case {
     std::uint64_t seed = 1;
     int rays_per_element = 64;
     int ions_per_species = 65536;
+    double refresh_move = 0.5; ///< [cells] arrivals are renewed after this movement of the front
     std::string resolved_yaml; ///< the case as understood, every default filled in
     std::vector<std::string> warnings;
 };

@@ -21,8 +21,8 @@ namespace {
 using geometry::Surface;
 using geometry::Vec3;
 
-constexpr double refresh_move = 0.5;    // [cells] arrivals are renewed after this movement
 constexpr double lost_ray_share = 1e-5; // a run with more lost rays than this is not trusted
+constexpr double touching = 1e-6;       // [cells] a front this near to a film has reached it
 constexpr double no_film_nm = 1e-9;     // thinner grown film counts as none
 
 /// Adds the wall time of its scope to a counter.
@@ -215,7 +215,7 @@ void Simulation::average_rates(fluxes::SurfaceStep& now, const fluxes::SurfaceSt
 
 Simulation::Trial Simulation::heun(double time_limit) {
     const fluxes::SurfaceStep& now = arrivals();
-    Trial predicted = try_advance(now, time_limit, refresh_move);
+    Trial predicted = try_advance(now, time_limit, case_.refresh_move);
     geometry::GrownFilms films = predicted.films;
     {
         const Stopwatch watch(timings_.carry);
@@ -233,7 +233,7 @@ Simulation::Trial Simulation::heun(double time_limit) {
     }
     const fluxes::SurfaceStep later = solve(predicted.surface, films, &now);
     average_rates(present_, later, predicted);
-    return try_advance(present_, predicted.report.time, 2 * refresh_move);
+    return try_advance(present_, predicted.report.time, 2 * case_.refresh_move);
 }
 
 double Simulation::distance_to_goal(const Surface& surface) const {
@@ -251,7 +251,8 @@ double Simulation::distance_to_goal(const Surface& surface) const {
     double z = floor->centre.value;
     if (end.kind == StepEnd::Kind::cleared)
         z = std::max({z, floor->left_edge.value, floor->right_edge.value});
-    return z - film->top;
+    // A film that holds still stops the front on its top, to round-off.
+    return z - film->top - touching * case_.domain.spacing;
 }
 
 /// Given a trial that overshoots the goal, finds the time within the step at which the goal is met
@@ -266,7 +267,7 @@ Simulation::Trial Simulation::land_on_goal(Trial&& beyond, const fluxes::Surface
         // Secant, kept away from the ends so that the bracket shrinks from both sides.
         const double between = n % 3 == 2 ? 0.5 : std::clamp(share, 1e-4, 1 - 1e-4);
         const double time = early + between * (late - early);
-        Trial trial = try_advance(step, time, 2 * refresh_move);
+        Trial trial = try_advance(step, time, 2 * case_.refresh_move);
         const double distance = distance_to_goal(trial.surface);
         if (distance <= 0) {
             best = std::move(trial);

@@ -13,6 +13,7 @@ constexpr double endless = std::numeric_limits<double>::infinity();
 constexpr double just_inside =
     1e-9; ///< [cells] a point on an interface counts for the solid's side
 constexpr double corner_inside = 0.2; ///< [cells] corners of the contour are known no better
+constexpr double thin_share = 0.05; ///< of the thickness of a thin film
 } // namespace
 
 double walk(const RateTables& tables, const Layers& layers, double angle, double time,
@@ -57,9 +58,19 @@ bool LayerFinder::near(int element, double z, double reach) const {
     return stack_.film_at(z + reach) != stack_.film_at(z - reach);
 }
 
+/// How far inside the solid its film is read [nm]; never across a film thinner than the uncertainty
+/// of corners, which would skip it.
+double LayerFinder::step_inside(const Foot& foot) const {
+    const double h = band_.domain.spacing;
+    if (!foot.corner)
+        return just_inside * h;
+    const Film& film =
+        stack_.films()[stack_.film_at(foot.point.z + just_inside * h * foot.inward.z)];
+    return std::min(corner_inside * h, thin_share * (film.top - film.bottom));
+}
+
 int LayerFinder::film_inside(const Foot& foot) const {
-    const double step = (foot.corner ? corner_inside : just_inside) * band_.domain.spacing;
-    return stack_.film_at(foot.point.z + step * foot.inward.z);
+    return stack_.film_at(foot.point.z + step_inside(foot) * foot.inward.z);
 }
 
 int LayerFinder::row_below(int element, const Foot& foot) const {
@@ -82,7 +93,7 @@ void LayerFinder::stack_below(int element, Foot foot, double reach, Layers& out)
     const Vec3 inward = foot.inward;
     for (double gone = 0; out.count < Layers::capacity;) {
         const int film = film_inside(foot);
-        const double step = (foot.corner ? corner_inside : just_inside) * band_.domain.spacing;
+        const double step = step_inside(foot);
         const int row = row_of_film(element, film);
         const double depth =
             stack_.distance_to_interface(foot.point + inward * step, inward) + step;

@@ -73,6 +73,7 @@ private:
     double grown(int element, Layers& out) const;
     unsigned slow_sides(std::size_t cell, const double* phi, int element, double angle) const;
     void stack_below(int element, Foot foot, double reach, Layers& out) const;
+    double step_inside(const Foot&) const;
     int film_inside(const Foot&) const;
     int row_of_film(int element, int film) const {
         return rates_.row(element, stack_.films()[film].material);

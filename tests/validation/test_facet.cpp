@@ -41,11 +41,10 @@ engine::RunResult erode_mask(double thickness, double removed, double spacing) {
 } // namespace
 
 // Oracle: D(d) = max over p of [H(p) - p d] per unit of flat removal; 1.7644, 1.5593, 1.3722,
-// 1.2024, 1.0502, 1 at d = 0, 0.1, ..., 0.5; the facet leans 65 deg at the edge and 53.66 deg at its
-// foot.
-// Source: Riemann problem of a surface whose speed depends on its slope, derived here; yield form:
-// Yamamura, Radiat. Eff. 80, 57 (1984).
-// Tolerance: 0.5 cell normal to the facet on average, 1 cell at most; slope 1.5 deg.
+// 1.2024, 1.0502, 1 at d = 0, 0.1, ..., 0.5; the facet leans 65 deg at the edge and 53.66 deg at
+// its foot. Source: Riemann problem of a surface whose speed depends on its slope, derived here;
+// yield form: Yamamura, Radiat. Eff. 80, 57 (1984). Tolerance: 0.5 cell normal to the facet on
+// average, 1 cell at most; slope 1.5 deg.
 TEST_CASE("facet of a mask corner", "[validation][facet]") {
     CHECK(exact_drop(0) == Approx(1.7644).margin(1e-4));
     CHECK(exact_drop(0.2) == Approx(1.3722).margin(1e-4));
@@ -75,8 +74,7 @@ TEST_CASE("facet of a mask corner", "[validation][facet]") {
     }
     REQUIRE(count > 20);
     REQUIRE(fitted > 10);
-    const double lean =
-        std::atan((sx * sz - fitted * sxz) / (fitted * sxx - sx * sx)) * 180 / pi;
+    const double lean = std::atan((sx * sz - fitted * sxz) / (fitted * sxx - sx * sx)) * 180 / pi;
     const double expected = std::atan((exact_drop(0.1) - exact_drop(0.3)) / 0.2) * 180 / pi;
     WARN("facet: mean " << sum / count << " cell, largest " << most << " cell, leans " << lean
                         << " deg, " << expected << " expected");
@@ -99,8 +97,8 @@ TEST_CASE("a facet that breaks through opens the mask", "[validation][facet]") {
         REQUIRE(cd);
         double opened = 0;
         for (double p = 0.5; p < 20; p += 1e-3)
-            opened = std::max(
-                opened, (peaked_yield(p) * removed - (thickness - 0.5 * spacing)) / p);
+            opened =
+                std::max(opened, (peaked_yield(p) * removed - (thickness - 0.5 * spacing)) / p);
         WARN("flat removal " << removed << ": opened by " << 0.5 * (cd->value - opening)
                              << " nm a side, " << opened << " expected");
         CHECK(0.5 * (cd->value - opening) == Approx(opened).margin(0.5 * spacing));

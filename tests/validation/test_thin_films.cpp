@@ -3,7 +3,9 @@
 
 #include <catch2/catch.hpp>
 
+#include <cmath>
 #include <limits>
+#include <string>
 
 using namespace rille;
 using namespace rille::tests;
@@ -27,6 +29,7 @@ double time_to_stop(TrenchCase& t) {
     t.run_until_reached("stop", "trench", 1e4);
     const auto outcome = run_quietly(t.c);
     REQUIRE(outcome.record.steps.size() == 1);
+    INFO(outcome.record.steps[0].reason);
     REQUIRE(outcome.record.status == "done");
     return outcome.record.steps[0].end_s;
 }
@@ -75,4 +78,17 @@ TEST_CASE("a liner thinner than a cell is opened first", "[validation][films]") 
     const double exact = 1.3 / 0.24 + 5 / 1.2, time = time_to_stop(t);
     WARN("liner: " << time / exact - 1 << " of the time too long");
     CHECK(time == Approx(exact).epsilon(0.005));
+}
+
+// Oracle: a step that waits for the open field ends when the flat film is gone; one that waits for
+// a feature under ions without spread ends at the same time.
+// Source: derived here. Tolerance: 1e-3 of the time that half a cell takes.
+TEST_CASE("a step ends when its film is reached", "[validation][films]") {
+    const std::string at = GENERATE("open field", "trench");
+    TrenchCase t = two_materials();
+    lay_films(t, {{0, 17.3}});
+    t.run_until_reached("stop", at, 1e4);
+    const auto outcome = run_quietly(t.c);
+    REQUIRE(outcome.record.status == "done");
+    CHECK(std::fabs(outcome.record.steps[0].end_s - 17.3 / 1.2) < 1e-3 * 1.0 / 1.2);
 }

@@ -156,7 +156,7 @@ TEST_CASE("faster mask erosion opens the CD", "[validation][trends]") {
         const double opened = cd->value - 50;
         const double expected = 2 * (yield * 60 / 50 * 60) / std::tan(80 * 3.14159265358979 / 180);
         WARN("mask yield " << yield << ": opened by " << opened << " nm, " << expected
-                            << " expected");
+                           << " expected");
         CAPTURE(yield, opened, expected);
         CHECK(opened == Approx(expected).epsilon(0.05).margin(2 * 0.15 * t.c.domain.spacing));
         CHECK(opened >= before - 0.05);
