@@ -211,8 +211,14 @@ bool add_layer(Band& band, double reach) {
             for (std::size_t a = begin; a < end; ++a)
                 value[a] = eikonal(grown, added[a], unknown);
         });
-        for (std::size_t a = 0; a < added.size(); ++a)
-            grown.phi[added[a]] = std::copysign(value[a], grown.phi[added[a]]);
+        bool settled = true;
+        for (std::size_t a = 0; a < added.size(); ++a) {
+            double& phi = grown.phi[added[a]];
+            settled = settled && std::fabs(phi) == value[a];
+            phi = std::copysign(value[a], phi);
+        }
+        if (settled)
+            break;
     }
     band = std::move(grown);
     return true;

@@ -12,6 +12,8 @@ namespace rille::geometry {
 
 namespace {
 
+constexpr double pi = 3.14159265358979323846;
+
 Vec3 nearest_on_segment(const Vec3& a, const Vec3& b, const Vec3& p) {
     const Vec3 along = b - a;
     const double square = along.dot(along);
@@ -45,17 +47,35 @@ struct Candidate {
     Vec3 foot;
 };
 
+/// What judging an element takes, side by side in memory: elements come in no order.
+struct Plate {
+    Vec3 centre, normal; ///< [nm] where it has moved to; unit
+    double size;         ///< [nm] reach from the centre: half a segment, more than a quad's disc
+};
+
+/// From the nearest point of the disc that stands for a quad, to a point `apart` from its centre.
+Vec3 from_disc(const Vec3& apart, const Plate& plate) {
+    const Vec3 across = apart - plate.normal * apart.dot(plate.normal);
+    const double square = across.dot(across), most = plate.size * plate.size * (1 / pi);
+    return square <= most ? apart - across : apart - across * std::sqrt(most / square);
+}
+
 class Search {
 public:
     Search(const Band& band, const Surface& surface, const std::vector<double>& moved)
         : band_(band), surface_(surface), moved_(moved), domain_(band.domain),
           tolerance_(1e-9 * band.domain.spacing) {
+        pack();
         assign_homes();
     }
 
     ClosestElements run();
 
 private:
+    /// What the neighbours of a cell have to say to it.
+    enum class Sweep { elements_and_homes, elements, news };
+
+    void pack();
     void assign_homes();
     Vec3 shift_of(int e) const {
         return moved_.empty() ? Vec3(0) : surface_.normal[e] * -moved_[e];
@@ -73,17 +93,33 @@ private:
             nearest(p.y, c.y, domain_.width_y());
         return p;
     }
+    Vec3 from_segment(const Vec3& p, int e) const {
+        const Vec3 shift = shift_of(e);
+        return p - (nearest_point(surface_, true, e, p - shift) + shift);
+    }
     void offer(const Vec3& p, int e, Candidate& best) const;
     bool better(double distance, double facing, int e, const Candidate& best) const;
-    void improve(std::size_t c, const std::vector<Candidate>& old, Candidate& best) const;
+    Candidate improved(std::size_t c, const std::vector<Candidate>& old, Sweep kind) const;
 
     const Band& band_;
     const Surface& surface_;
     const std::vector<double>& moved_;
     const Domain domain_;
     double tolerance_;
+    std::vector<Plate> plates_;
+    std::vector<char> fresh_; ///< per cell: the last sweep changed its element
     std::vector<int> home_first_, home_element_;
 };
+
+void Search::pack() {
+    plates_.resize(surface_.size());
+    for_ranges(plates_.size(), [&](std::size_t begin, std::size_t end) {
+        for (std::size_t e = begin; e < end; ++e)
+            plates_[e] = {surface_.centre[e] + shift_of(static_cast<int>(e)), surface_.normal[e],
+                          domain_.extruded() ? 0.5 * surface_.area[e]
+                                             : std::sqrt(surface_.area[e])};
+    });
+}
 
 void Search::assign_homes() {
     ColumnIndex index;
@@ -93,7 +129,7 @@ void Search::assign_homes() {
     std::vector<int> home(n, -1);
     home_first_.assign(band_.size() + 1, 0);
     for (int e = 0; e < n; ++e) {
-        const Vec3 c = surface_.centre[e] + shift_of(e);
+        const Vec3& c = plates_[e].centre;
         const int i = static_cast<int>(std::floor((c.x - domain_.x_min()) / h));
         const int j =
             domain_.extruded() ? 0 : static_cast<int>(std::floor((c.y - domain_.y_min()) / h));
@@ -129,36 +165,34 @@ bool Search::better(double distance, double facing, int e, const Candidate& best
 void Search::offer(const Vec3& p, int e, Candidate& best) const {
     if (e == best.element)
         return;
-    const Vec3 shift = shift_of(e);
-    const Vec3 local = image(p, surface_.centre[e] + shift);
-    // An element's reach from its centre: half a segment, the disc of a quad.
-    const double size = domain_.extruded() ? 0.5 * surface_.area[e] : std::sqrt(surface_.area[e]);
-    const double least = best.distance + size + tolerance_;
-    const Vec3 apart = local - shift - surface_.centre[e];
+    const Plate& plate = plates_[e];
+    const Vec3 local = image(p, plate.centre);
+    const double least = best.distance + plate.size + tolerance_;
+    const Vec3 apart = local - plate.centre;
     if (apart.dot(apart) > least * least)
         return;
-    const Vec3 foot = nearest_point(surface_, domain_.extruded(), e, local - shift) + shift;
-    const Vec3 away = local - foot;
+    const Vec3 away = domain_.extruded() ? from_segment(local, e) : from_disc(apart, plate);
     const double distance = away.length();
     if (distance > best.distance + tolerance_)
         return;
     const double facing =
-        distance > tolerance_ ? std::fabs(away.dot(surface_.normal[e])) / distance : 1.0;
+        distance > tolerance_ ? std::fabs(away.dot(plate.normal)) / distance : 1.0;
     if (!better(distance, facing, e, best))
         return;
     best = {e, distance, facing, p - away};
 }
 
 /// The best of what the cell and its neighbours knew. An element is looked at once.
-void Search::improve(std::size_t c, const std::vector<Candidate>& old, Candidate& best) const {
+Candidate Search::improved(std::size_t c, const std::vector<Candidate>& old, Sweep kind) const {
     const Band::Cell& cell = band_.cells[c];
     const Vec3 p = domain_.node(cell.i, cell.j, cell.k);
-    best = old[c];
+    Candidate best = old[c];
     std::array<int, 6> seen;
     int count = 0;
     const auto homes = [&](std::size_t at) {
-        for (int h = home_first_[at]; h < home_first_[at + 1]; ++h)
-            offer(p, home_element_[h], best);
+        if (kind == Sweep::elements_and_homes)
+            for (int h = home_first_[at]; h < home_first_[at + 1]; ++h)
+                offer(p, home_element_[h], best);
     };
     // Along the chain: of two elements that share the nearest vertex a neighbour may know one only.
     const auto joined = [&](int e) {
@@ -171,7 +205,7 @@ void Search::improve(std::size_t c, const std::vector<Candidate>& old, Candidate
     homes(c);
     joined(best.element);
     for (const int n : band_.neighbour[c]) {
-        if (n < 0 || n == static_cast<int>(c))
+        if (n < 0 || n == static_cast<int>(c) || (kind == Sweep::news && !fresh_[n]))
             continue;
         const int e = old[n].element;
         if (e >= 0 && std::find(seen.begin(), seen.begin() + count, e) == seen.begin() + count) {
@@ -181,11 +215,13 @@ void Search::improve(std::size_t c, const std::vector<Candidate>& old, Candidate
         }
         homes(n);
     }
+    return best;
 }
 
 ClosestElements Search::run() {
     const std::size_t n = band_.size();
     std::vector<Candidate> now(n), next;
+    fresh_.assign(n, 0);
     // Cells by distance in rings of one cell: inner rings are settled before outer ones ask them.
     std::array<std::vector<int>, 4> rings;
     for (std::size_t c = 0; c < n; ++c) {
@@ -193,18 +229,26 @@ ClosestElements Search::run() {
         rings[std::min(rings.size() - 1, static_cast<std::size_t>(ring))].push_back(
             static_cast<int>(c));
     }
-    for (const std::vector<int>& ring : rings)
-        for (int round = 0; round < (&ring == &rings[0] ? 3 : 2); ++round) {
-            next.resize(ring.size());
+    for (std::size_t at = 0; at < rings.size(); ++at) {
+        const std::vector<int>& ring = rings[at];
+        next.resize(ring.size());
+        for (int round = 0; round < (at == 0 ? 3 : 2); ++round) {
+            // Homes lie within a cell of the contour; and nobody needs to hear a thing twice.
+            const Sweep kind = round > 0 ? Sweep::news
+                                         : (at < 2 ? Sweep::elements_and_homes : Sweep::elements);
             for_ranges(ring.size(), [&](std::size_t begin, std::size_t end) {
                 for (std::size_t r = begin; r < end; ++r)
-                    improve(ring[r], now, next[r]);
+                    next[r] = improved(ring[r], now, kind);
             });
             for_ranges(ring.size(), [&](std::size_t begin, std::size_t end) {
-                for (std::size_t r = begin; r < end; ++r)
-                    now[ring[r]] = next[r];
+                for (std::size_t r = begin; r < end; ++r) {
+                    fresh_[ring[r]] = next[r].element != now[ring[r]].element;
+                    if (fresh_[ring[r]])
+                        now[ring[r]] = next[r];
+                }
             });
         }
+    }
     ClosestElements out;
     out.element.resize(n);
     out.foot.resize(n);

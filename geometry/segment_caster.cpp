@@ -29,14 +29,15 @@ struct Pair {
 };
 
 /// Bit k: vertex k lies on the right of the ray through o along d; side: its cross product with d.
-/// Both ways give the same bits.
+/// `count` is even, x and z aligned to 16 bytes. Both ways give the same bits.
+template <int count>
 inline unsigned vertices_on_right(const double* x, const double* z, const Pair& o, const Pair& d,
                                   double positive, double* side) {
     unsigned right = 0;
 #ifdef __SSE2__
     const __m128d ox = _mm_set1_pd(o.x), oz = _mm_set1_pd(o.z);
     const __m128d dx = _mm_set1_pd(d.x), dz = _mm_set1_pd(d.z), limit = _mm_set1_pd(positive);
-    for (int k = 0; k < 8; k += 2) {
+    for (int k = 0; k < count; k += 2) {
         const __m128d along = _mm_mul_pd(dx, _mm_sub_pd(_mm_load_pd(z + k), oz));
         const __m128d across = _mm_mul_pd(dz, _mm_sub_pd(_mm_load_pd(x + k), ox));
         const __m128d s = _mm_sub_pd(along, across);
@@ -44,7 +45,7 @@ inline unsigned vertices_on_right(const double* x, const double* z, const Pair& 
         right |= static_cast<unsigned>(_mm_movemask_pd(_mm_cmplt_pd(s, limit))) << k;
     }
 #else
-    for (int k = 0; k < 8; ++k) {
+    for (int k = 0; k < count; ++k) {
         side[k] = d.x * (z[k] - o.z) - d.z * (x[k] - o.x);
         right |= static_cast<unsigned>(side[k] < positive) << k;
     }
@@ -177,23 +178,17 @@ bool SegmentCaster::cross_side(Ray& ray) const {
 
 /// Tests the runs of one cell, of which `run` is the first.
 inline void SegmentCaster::test_runs(const Ray& ray, const Run* run, Best& best) const {
+    constexpr unsigned segments = (1u << run_length) - 1;
+    alignas(16) std::array<double, run_vertices> side;
     for (;; ++run) {
-        // From behind nothing is hit. The margin leaves what is level with the ray to the test
-        // below.
-        const auto facing = [&](const std::array<double, 2>& n) {
-            return n[0] * ray.dx + n[1] * ray.dz;
-        };
-        if (!(facing(run->normal_first) > 1e-9 && facing(run->normal_last) > 1e-9)) {
-            alignas(16) std::array<double, 8> side;
-            const unsigned right =
-                vertices_on_right(run->x.data(), run->z.data(), {ray.ox, ray.oz}, {ray.dx, ray.dz},
-                                  ray.positive, side.data());
-            // From the gas the ray sees a segment's start on its right and its end on its left.
-            for (unsigned crossed = right & ~(right >> 1) & 0x7fu; crossed != 0;
-                 crossed &= crossed - 1) {
-                const int k = __builtin_ctz(crossed);
-                test_segment(ray, *run, k, side[k] / (side[k] - side[k + 1]), best);
-            }
+        const unsigned right =
+            vertices_on_right<run_vertices>(run->x.data(), run->z.data(), {ray.ox, ray.oz},
+                                            {ray.dx, ray.dz}, ray.positive, side.data());
+        // From the gas the ray sees a segment's start on its right and its end on its left.
+        for (unsigned crossed = right & ~(right >> 1) & segments; crossed != 0;
+             crossed &= crossed - 1) {
+            const int k = __builtin_ctz(crossed);
+            test_segment(ray, *run, k, side[k] / (side[k] - side[k + 1]), best);
         }
         if (run->last) return;
     }

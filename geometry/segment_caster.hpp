@@ -26,11 +26,11 @@ public:
     Hit trace(const Vec3& origin, const Vec3& direction, int from_element) const;
 
 private:
-    /// Up to seven consecutive elements of a chain: their eight vertices, and the cone of their
-    /// normals. Unused places repeat the last vertex.
+    /// Up to `run_length` consecutive elements of a chain: their vertices. Unused places repeat the
+    /// last one. Two cache lines.
+    static constexpr int run_length = 5, run_vertices = run_length + 1;
     struct alignas(64) Run {
-        std::array<double, 8> x, z;
-        std::array<double, 2> normal_first, normal_last;
+        std::array<double, run_vertices> x, z;
         int element; ///< of the first two vertices
         bool last;   ///< of its cell
     };

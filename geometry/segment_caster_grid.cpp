@@ -21,9 +21,9 @@ void SegmentCaster::choose_grid(const Surface& surface) {
     }
     RILLE_CHECK(z_open_ >= high, "the source plane lies below the top of the surface");
     const double n = static_cast<double>(surface.size());
-    // About four cells a segment: a run of seven fits what crosses a cell of a trench.
+    // About eight cells a segment: a run of five fits what crosses a cell of a trench.
     const double area = width_ * (high - low + 1e-3 * length);
-    const double size = std::max(1.5 * length / n, std::sqrt(area / (4 * n)));
+    const double size = std::max(1.5 * length / n, std::sqrt(area / (8 * n)));
     nx_ = std::max(1, static_cast<int>(std::lround(width_ / size)));
     cell_x_ = width_ / nx_;
     // The grid ends exactly at the top: a ray that rises above it is free.
@@ -69,18 +69,16 @@ void SegmentCaster::fill_cells(const Surface& surface) {
 }
 
 SegmentCaster::Room SegmentCaster::room(const Rectangle& r) const {
-    return {x_min_ + r.x0 * cell_x_,
-            x_min_ + (r.x1 + 1) * cell_x_,
-            z_min_ + r.z0 * cell_z_,
-            z_min_ + (r.z1 + 1) * cell_z_,
-            r};
+    return {x_min_ + r.x0 * cell_x_, x_min_ + (r.x1 + 1) * cell_x_, z_min_ + r.z0 * cell_z_,
+            z_min_ + (r.z1 + 1) * cell_z_, r};
 }
 
 /// Splits a cell's elements, in ascending order, into runs that share vertices.
 void SegmentCaster::add_runs(const std::vector<int>& elements, const Surface& surface) {
     for (std::size_t i = 0; i < elements.size();) {
         std::size_t end = i + 1;
-        while (end < elements.size() && end - i < 7 && elements[end] == elements[end - 1] + 1 &&
+        while (end < elements.size() && end - i < run_length &&
+               elements[end] == elements[end - 1] + 1 &&
                surface.corners[elements[end]][0] == surface.corners[elements[end - 1]][1])
             ++end;
         runs_.push_back(make_run(elements[i], static_cast<int>(end - i)));
@@ -93,34 +91,11 @@ SegmentCaster::Run SegmentCaster::make_run(int first, int count) const {
     Run run;
     run.element = first;
     run.last = false;
-    double nx = 0, nz = 0;
-    for (int k = 0; k < 8; ++k) {
+    for (int k = 0; k < run_vertices; ++k) {
         const auto& e = ends_[first + std::min(k, count - 1)];
         run.x[k] = k < count ? e[0] : e[2];
         run.z[k] = k < count ? e[1] : e[3];
-        if (k >= count) continue;
-        nx -= e[3] - e[1];
-        nz += e[2] - e[0];
     }
-    // Extreme normals to either side of the mean one; a run that bends too far is never passed
-    // over.
-    double low = 0, high = 0;
-    for (int k = 0; k < count; ++k) {
-        const auto& e = ends_[first + k];
-        const double px = -(e[3] - e[1]), pz = e[2] - e[0];
-        const double angle = std::atan2(nx * pz - nz * px, nx * px + nz * pz);
-        low = std::min(low, angle);
-        high = std::max(high, angle);
-    }
-    const double length = std::sqrt(nx * nx + nz * nz);
-    if (length == 0 || high > 1.5 || low < -1.5 || high - low > 3) {
-        run.normal_first = {1, 0};
-        run.normal_last = {-1, 0};
-        return run;
-    }
-    const double mean = std::atan2(nz, nx);
-    run.normal_first = {std::cos(mean + low), std::sin(mean + low)};
-    run.normal_last = {std::cos(mean + high), std::sin(mean + high)};
     return run;
 }
 
