@@ -22,7 +22,7 @@ struct Demands {
     double least_weight;   ///< undisturbed elements that a face needs
     double largest_spread; ///< of the angle between faces; more is a round surface
 };
-constexpr Demands drawn{1e-9, 0.35}, etched{0.5, 0.15};
+constexpr Demands drawn{1e-9, 0.35}, etched{1.0, 0.10};
 
 /// A fitted face; `point` relative to the vertex at hand, in cells.
 struct Face {
