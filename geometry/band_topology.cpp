@@ -133,6 +133,8 @@ double eikonal(const Band& band, std::size_t c, double unknown) {
 /// Contouring needs all cells within two steps, whatever phi says where it is no distance.
 std::vector<char> steps_to_contour(const Band& band) {
     std::vector<char> steps(band.size(), 3);
+    if (band.domain.extruded())
+        return steps;
     for (int step = 0; step < 3; ++step) {
         const std::vector<char> before = steps;
         for_ranges(band.size(), [&](std::size_t begin, std::size_t end) {
@@ -221,7 +223,9 @@ bool add_layer(Band& band, double reach) {
             break;
     }
     band = std::move(grown);
-    return true;
+    return !band.domain.extruded() || std::any_of(added.begin(), added.end(), [&](int c) {
+        return std::fabs(band.phi[c]) <= reach;
+    });
 }
 
 } // namespace
