@@ -21,8 +21,10 @@ SurfaceState snapshot(const Case& the_case, Simulation& simulation, bool solved 
     state.surface = simulation.surface();
     state.grown = simulation.films();
     state.displacement = simulation.displacement_errors();
-    if (solved) fill_state(state, the_case, simulation.arrivals());
-    else state.material = simulation.materials();
+    if (solved)
+        fill_state(state, the_case, simulation.arrivals());
+    else
+        state.material = simulation.materials();
     return state;
 }
 

@@ -197,9 +197,8 @@ void Simulation::average_rates(fluxes::SurfaceStep& now, const fluxes::SurfaceSt
         for (int r = now.rates.first_row[e]; r < now.rates.first_row[e + 1]; ++r) {
             const int other = later.rates.row(there.element, now.rates.material[r]);
             if (other < 0) continue;
-            const int beside = there.partner < 0
-                                   ? -1
-                                   : later.rates.row(there.partner, now.rates.material[r]);
+            const int beside =
+                there.partner < 0 ? -1 : later.rates.row(there.partner, now.rates.material[r]);
             const double share = beside < 0 ? 0 : there.share;
             const double* near = &later.rates.table[other * angles];
             const double* next = share > 0 ? &later.rates.table[beside * angles] : near;
@@ -209,7 +208,8 @@ void Simulation::average_rates(fluxes::SurfaceStep& now, const fluxes::SurfaceSt
             }
         }
         for (std::size_t b = 0; b < now.rate_batch.size(); ++b)
-            now.rate_batch[b][e] = 0.5 * (now.rate_batch[b][e] + later.rate_batch[b][there.element]);
+            now.rate_batch[b][e] =
+                0.5 * (now.rate_batch[b][e] + later.rate_batch[b][there.element]);
     }
 }
 

@@ -134,7 +134,8 @@ public:
     }
 
 private:
-    template <class Work> void over_elements(const Work& work) const {
+    template <class Work>
+    void over_elements(const Work& work) const {
         tbb::parallel_for(tbb::blocked_range<int>(0, static_cast<int>(surface_.size()), 16),
                           [&](const tbb::blocked_range<int>& range) {
                               for (int e = range.begin(); e != range.end(); ++e)
@@ -167,9 +168,8 @@ private:
         const auto known = std::find(angle_factor_.begin(), angle_factor_.end(), table);
         const int angle = static_cast<int>(known - angle_factor_.begin());
         if (known == angle_factor_.end()) angle_factor_.push_back(table);
-        kernels_.push_back(
-            {group, std::move(content),
-             EnergyTable(tally.yield.energy, groups_[group].distribution), angle});
+        kernels_.push_back({group, std::move(content),
+                            EnergyTable(tally.yield.energy, groups_[group].distribution), angle});
     }
 
     /// One ray per direction; adds up the flux, in units of the open flux.

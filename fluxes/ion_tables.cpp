@@ -134,10 +134,9 @@ void IonTables::place_angles(geometry::Symmetry symmetry) {
         }
     }
     // Ions without a preferred side: angles without one, so that mirror images stay so.
-    const bool even =
-        extruded && std::all_of(ions_.begin(), ions_.end(), [](const IonSource& ion) {
-            return std::fabs(ion.distribution.mean_rad()) < 1e-9;
-        });
+    const bool even = extruded && std::all_of(ions_.begin(), ions_.end(), [](const IonSource& ion) {
+                          return std::fabs(ion.distribution.mean_rad()) < 1e-9;
+                      });
     const double from = extruded && !even ? -pi : 0.0;
     const std::size_t most = extruded ? 240 : 64;
     for (double coarsen = 1;; coarsen *= 1.1) {

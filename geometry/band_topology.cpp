@@ -62,10 +62,8 @@ void connect_within_row(Band& band, int begin, int end) {
         auto& n = band.neighbour[c];
         n[0] = c > begin && band.cells[c - 1].i == i - 1 ? c - 1 : -1;
         n[1] = c + 1 < end && band.cells[c + 1].i == i + 1 ? c + 1 : -1;
-        if (i == 0)
-            n[0] = mirror ? c : (band.cells[end - 1].i == nx - 1 ? end - 1 : -1);
-        if (i == nx - 1)
-            n[1] = mirror ? c : (band.cells[begin].i == 0 ? begin : -1);
+        if (i == 0) n[0] = mirror ? c : (band.cells[end - 1].i == nx - 1 ? end - 1 : -1);
+        if (i == nx - 1) n[1] = mirror ? c : (band.cells[begin].i == 0 ? begin : -1);
     }
 }
 
@@ -81,20 +79,15 @@ bool upwind_term(const Band& band, std::size_t c, int axis, double unknown, Upwi
     int best = -1;
     for (int side = 2 * axis; side < 2 * axis + 2; ++side) {
         const int m = band.neighbour[c][side];
-        if (m < 0 || m == static_cast<int>(c))
-            continue;
-        if (best < 0 || sign * band.phi[m] < sign * band.phi[band.neighbour[c][best]])
-            best = side;
+        if (m < 0 || m == static_cast<int>(c)) continue;
+        if (best < 0 || sign * band.phi[m] < sign * band.phi[band.neighbour[c][best]]) best = side;
     }
-    if (best < 0)
-        return false;
+    if (best < 0) return false;
     const int first = band.neighbour[c][best], second = band.neighbour[first][best];
     const double u = std::max(0.0, sign * band.phi[first]);
-    if (u >= unknown)
-        return false;
+    if (u >= unknown) return false;
     term = {u, u, 1};
-    if (second < 0 || sign * band.phi[second] > u)
-        return true;
+    if (second < 0 || sign * band.phi[second] > u) return true;
     term.at = (4 * sign * band.phi[first] - sign * band.phi[second]) / 3;
     term.weight = 1.5;
     return true;
@@ -108,8 +101,7 @@ double eikonal(const Band& band, std::size_t c, double unknown) {
     int n = 0;
     for (int axis = 0; axis < 3; ++axis) {
         UpwindTerm term;
-        if (!upwind_term(band, c, axis, unknown, term))
-            continue;
+        if (!upwind_term(band, c, axis, unknown, term)) continue;
         int at = n++; // kept in rising order
         for (; at > 0 && terms[at - 1].least > term.least; --at)
             terms[at] = terms[at - 1];
@@ -122,8 +114,7 @@ double eikonal(const Band& band, std::size_t c, double unknown) {
         linear += w * terms[m].at;
         constant += w * terms[m].at * terms[m].at;
         const double root = linear * linear - square * constant;
-        if (root < 0)
-            break;
+        if (root < 0) break;
         u = (linear + std::sqrt(root)) / square;
     }
     return std::max(u, n > 0 ? terms[0].least : u);
@@ -133,8 +124,7 @@ double eikonal(const Band& band, std::size_t c, double unknown) {
 /// Contouring needs all cells within two steps, whatever phi says where it is no distance.
 std::vector<char> steps_to_contour(const Band& band) {
     std::vector<char> steps(band.size(), 3);
-    if (band.domain.extruded())
-        return steps;
+    if (band.domain.extruded()) return steps;
     for (int step = 0; step < 3; ++step) {
         const std::vector<char> before = steps;
         for_ranges(band.size(), [&](std::size_t begin, std::size_t end) {
@@ -157,8 +147,7 @@ std::vector<std::pair<Band::Cell, double>> missing_cells(const Band& band, doubl
     const std::vector<char> steps = steps_to_contour(band);
     std::vector<std::pair<Band::Cell, double>> out;
     for (std::size_t c = 0; c < band.size(); ++c) {
-        if (std::fabs(band.phi[c]) > reach && steps[c] > 1)
-            continue;
+        if (std::fabs(band.phi[c]) > reach && steps[c] > 1) continue;
         for (int side = 0; side < 6; ++side) {
             if (band.neighbour[c][side] >= 0 || (d.extruded() && (side == 2 || side == 3)))
                 continue;
@@ -181,8 +170,7 @@ std::vector<std::pair<Band::Cell, double>> missing_cells(const Band& band, doubl
 /// there was any to add.
 bool add_layer(Band& band, double reach) {
     const auto fresh = missing_cells(band, reach);
-    if (fresh.empty())
-        return false;
+    if (fresh.empty()) return false;
     const double unknown = 4 * reach;
     Band grown;
     grown.domain = band.domain;
@@ -219,8 +207,7 @@ bool add_layer(Band& band, double reach) {
             settled = settled && std::fabs(phi) == value[a];
             phi = std::copysign(value[a], phi);
         }
-        if (settled)
-            break;
+        if (settled) break;
     }
     band = std::move(grown);
     return !band.domain.extruded() || std::any_of(added.begin(), added.end(), [&](int c) {
@@ -231,8 +218,7 @@ bool add_layer(Band& band, double reach) {
 } // namespace
 
 void for_ranges(std::size_t n, const std::function<void(std::size_t, std::size_t)>& body) {
-    if (n <= range_size)
-        return body(0, n);
+    if (n <= range_size) return body(0, n);
     tbb::parallel_for(tbb::blocked_range<std::size_t>(0, (n + range_size - 1) / range_size, 1),
                       [&](const tbb::blocked_range<std::size_t>& r) {
                           for (std::size_t b = r.begin(); b < r.end(); ++b)
@@ -242,8 +228,7 @@ void for_ranges(std::size_t n, const std::function<void(std::size_t, std::size_t
 
 double largest_of_ranges(std::size_t n,
                          const std::function<double(std::size_t, std::size_t)>& body) {
-    if (n <= range_size)
-        return std::max(0.0, body(0, n));
+    if (n <= range_size) return std::max(0.0, body(0, n));
     return tbb::parallel_reduce(
         tbb::blocked_range<std::size_t>(0, (n + range_size - 1) / range_size, 1), 0.0,
         [&](const tbb::blocked_range<std::size_t>& r, double most) {
@@ -255,8 +240,7 @@ double largest_of_ranges(std::size_t n,
 }
 
 int fold_index(int i, int count, Sides sides) {
-    if (i >= 0 && i < count)
-        return i;
+    if (i >= 0 && i < count) return i;
     const int period = sides == Sides::mirror ? 2 * count : count;
     const int m = ((i % period) + period) % period;
     return m < count ? m : period - 1 - m;
@@ -295,10 +279,8 @@ double ColumnIndex::phi(const Band& band, int i, int j, int k) const {
     const double beyond = band_half_width * band.domain.spacing;
     const int* at = std::lower_bound(begin, end, k,
                                      [&](int c, int wanted) { return band.cells[c].k < wanted; });
-    if (at == end)
-        return beyond;
-    if (band.cells[*at].k == k)
-        return std::clamp(band.phi[*at], -beyond, beyond);
+    if (at == end) return beyond;
+    if (band.cells[*at].k == k) return std::clamp(band.phi[*at], -beyond, beyond);
     return at == begin || band.phi[*at] < 0 ? -beyond : beyond;
 }
 
@@ -316,8 +298,7 @@ void connect(Band& band) {
             const int k = rows.k_low + static_cast<int>(r / rows.ny);
             const int j = static_cast<int>(r % rows.ny);
             const int first = rows.first[r], last = rows.first[r + 1];
-            if (first == last)
-                continue;
+            if (first == last) continue;
             connect_within_row(band, first, last);
             for (int up = 0; up < 2; ++up) {
                 const int side_y = 2 + up, side_z = 4 + up, to_j = up ? j + 1 : j - 1;
@@ -348,8 +329,7 @@ void retopologise(Band& band, int layers) {
     const std::vector<char> steps = steps_to_contour(band);
     std::size_t kept = 0;
     for (std::size_t c = 0; c < band.size(); ++c) {
-        if (std::fabs(band.phi[c]) > reach && steps[c] > 2)
-            continue;
+        if (std::fabs(band.phi[c]) > reach && steps[c] > 2) continue;
         band.cells[kept] = band.cells[c];
         band.phi[kept++] = band.phi[c];
     }
@@ -367,8 +347,7 @@ double edge_distance(const Band& band) {
                    const auto& n = band.neighbour[c];
                    const bool inner = n[0] >= 0 && n[1] >= 0 && n[4] >= 0 && n[5] >= 0 &&
                                       (flat || (n[2] >= 0 && n[3] >= 0));
-                   if (!inner)
-                       most = std::max(most, far - std::fabs(band.phi[c]));
+                   if (!inner) most = std::max(most, far - std::fabs(band.phi[c]));
                }
                return most;
            });

@@ -17,8 +17,7 @@ constexpr double pi = 3.14159265358979323846;
 Vec3 nearest_on_segment(const Vec3& a, const Vec3& b, const Vec3& p) {
     const Vec3 along = b - a;
     const double square = along.dot(along);
-    if (square == 0)
-        return a;
+    if (square == 0) return a;
     return a + along * std::clamp((p - a).dot(along) / square, 0.0, 1.0);
 }
 
@@ -34,8 +33,7 @@ Vec3 nearest_on_triangle(const Vec3& a, const Vec3& b, const Vec3& c, const Vec3
     }
     Vec3 best = nearest_on_segment(a, b, p);
     for (const Vec3& q : {nearest_on_segment(b, c, p), nearest_on_segment(c, a, p)})
-        if ((q - p).length() < (best - p).length())
-            best = q;
+        if ((q - p).length() < (best - p).length()) best = q;
     return best;
 }
 
@@ -82,15 +80,12 @@ private:
     }
     /// Nearest image of p to point c in a periodic domain.
     Vec3 image(Vec3 p, const Vec3& c) const {
-        if (domain_.sides != Sides::periodic)
-            return p;
+        if (domain_.sides != Sides::periodic) return p;
         const auto nearest = [](double& at, double to, double width) {
-            if (std::fabs(at - to) > 0.5 * width)
-                at -= width * std::round((at - to) / width);
+            if (std::fabs(at - to) > 0.5 * width) at -= width * std::round((at - to) / width);
         };
         nearest(p.x, c.x, domain_.width_x());
-        if (!domain_.extruded())
-            nearest(p.y, c.y, domain_.width_y());
+        if (!domain_.extruded()) nearest(p.y, c.y, domain_.width_y());
         return p;
     }
     Vec3 from_segment(const Vec3& p, int e) const {
@@ -136,49 +131,39 @@ void Search::assign_homes() {
         home[e] = index.find(band_, fold_index(i, domain_.cells_x, domain_.sides),
                              fold_index(j, domain_.cells_y, domain_.sides),
                              static_cast<int>(std::floor(c.z / h)));
-        if (home[e] >= 0)
-            ++home_first_[home[e] + 1];
+        if (home[e] >= 0) ++home_first_[home[e] + 1];
     }
     for (std::size_t c = 1; c < home_first_.size(); ++c)
         home_first_[c] += home_first_[c - 1];
     std::vector<int> at(home_first_.begin(), home_first_.end() - 1);
     home_element_.resize(home_first_.back());
     for (int e = 0; e < n; ++e)
-        if (home[e] >= 0)
-            home_element_[at[home[e]]++] = e;
+        if (home[e] >= 0) home_element_[at[home[e]]++] = e;
 }
 
 bool Search::better(double distance, double facing, int e, const Candidate& best) const {
-    if (best.element < 0)
-        return true;
-    if (distance < best.distance - tolerance_)
-        return true;
-    if (distance > best.distance + tolerance_)
-        return false;
-    if (std::fabs(facing - best.facing) > 1e-9)
-        return facing > best.facing;
+    if (best.element < 0) return true;
+    if (distance < best.distance - tolerance_) return true;
+    if (distance > best.distance + tolerance_) return false;
+    if (std::fabs(facing - best.facing) > 1e-9) return facing > best.facing;
     const double level =
         std::fabs(surface_.normal[e].z) - std::fabs(surface_.normal[best.element].z);
     return std::fabs(level) > 1e-9 ? level > 0 : e < best.element;
 }
 
 void Search::offer(const Vec3& p, int e, Candidate& best) const {
-    if (e == best.element)
-        return;
+    if (e == best.element) return;
     const Plate& plate = plates_[e];
     const Vec3 local = image(p, plate.centre);
     const double least = best.distance + plate.size + tolerance_;
     const Vec3 apart = local - plate.centre;
-    if (apart.dot(apart) > least * least)
-        return;
+    if (apart.dot(apart) > least * least) return;
     const Vec3 away = domain_.extruded() ? from_segment(local, e) : from_disc(apart, plate);
     const double distance = away.length();
-    if (distance > best.distance + tolerance_)
-        return;
+    if (distance > best.distance + tolerance_) return;
     const double facing =
         distance > tolerance_ ? std::fabs(away.dot(plate.normal)) / distance : 1.0;
-    if (!better(distance, facing, e, best))
-        return;
+    if (!better(distance, facing, e, best)) return;
     best = {e, distance, facing, p - away};
 }
 
@@ -196,17 +181,14 @@ Candidate Search::improved(std::size_t c, const std::vector<Candidate>& old, Swe
     };
     // Along the chain: of two elements that share the nearest vertex a neighbour may know one only.
     const auto joined = [&](int e) {
-        if (e < 0 || !domain_.extruded())
-            return;
+        if (e < 0 || !domain_.extruded()) return;
         for (const int n : {surface_.previous[e], surface_.next[e]})
-            if (n >= 0)
-                offer(p, n, best);
+            if (n >= 0) offer(p, n, best);
     };
     homes(c);
     joined(best.element);
     for (const int n : band_.neighbour[c]) {
-        if (n < 0 || n == static_cast<int>(c) || (kind == Sweep::news && !fresh_[n]))
-            continue;
+        if (n < 0 || n == static_cast<int>(c) || (kind == Sweep::news && !fresh_[n])) continue;
         const int e = old[n].element;
         if (e >= 0 && std::find(seen.begin(), seen.begin() + count, e) == seen.begin() + count) {
             seen[count++] = e;
@@ -234,8 +216,8 @@ ClosestElements Search::run() {
         next.resize(ring.size());
         for (int round = 0; round < (at == 0 ? 3 : 2); ++round) {
             // Homes lie within a cell of the contour; and nobody needs to hear a thing twice.
-            const Sweep kind = round > 0 ? Sweep::news
-                                         : (at < 2 ? Sweep::elements_and_homes : Sweep::elements);
+            const Sweep kind =
+                round > 0 ? Sweep::news : (at < 2 ? Sweep::elements_and_homes : Sweep::elements);
             for_ranges(ring.size(), [&](std::size_t begin, std::size_t end) {
                 for (std::size_t r = begin; r < end; ++r)
                     next[r] = improved(ring[r], now, kind);
@@ -243,8 +225,7 @@ ClosestElements Search::run() {
             for_ranges(ring.size(), [&](std::size_t begin, std::size_t end) {
                 for (std::size_t r = begin; r < end; ++r) {
                     fresh_[ring[r]] = next[r].element != now[ring[r]].element;
-                    if (fresh_[ring[r]])
-                        now[ring[r]] = next[r];
+                    if (fresh_[ring[r]]) now[ring[r]] = next[r];
                 }
             });
         }
@@ -269,18 +250,15 @@ Vec3 nearest_point(const Surface& s, bool extruded, int e, const Vec3& p) {
     const Vec3 from = p - s.centre[e];
     const Vec3 across = from - s.normal[e] * from.dot(s.normal[e]);
     const double square = across.dot(across), radius_square = s.area[e] * (1 / 3.14159265358979);
-    if (square <= radius_square)
-        return s.centre[e] + across;
+    if (square <= radius_square) return s.centre[e] + across;
     return s.centre[e] + across * std::sqrt(radius_square / square);
 }
 
 Vec3 exact_nearest_point(const Surface& s, bool extruded, int e, const Vec3& p) {
-    if (extruded)
-        return nearest_point(s, extruded, e, p);
+    if (extruded) return nearest_point(s, extruded, e, p);
     const auto& q = s.corners[e];
     const Vec3 first = nearest_on_triangle(s.vertices[q[0]], s.vertices[q[1]], s.vertices[q[2]], p);
-    if (q[2] == q[3])
-        return first;
+    if (q[2] == q[3]) return first;
     const Vec3 second =
         nearest_on_triangle(s.vertices[q[0]], s.vertices[q[2]], s.vertices[q[3]], p);
     return (second - p).length() < (first - p).length() ? second : first;

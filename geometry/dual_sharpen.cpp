@@ -9,13 +9,13 @@ namespace rille::geometry {
 
 namespace {
 
-constexpr double flat_cosine = 0.978;   ///< 12 deg: quads round a vertex away from edges
-constexpr double sharp_cosine = 0.906;  ///< 25 deg: a vertex worth looking at
-constexpr double edge_cosine = 0.866;   ///< 30 deg between one-sided normals: an edge
-constexpr double third_cosine = 0.707;  ///< 45 deg to both faces of an edge: a third face
-constexpr double reach = 4.6;           ///< [cells] faces are fitted within
-constexpr double undisturbed = 1.8;     ///< [cells] of an element's centre from the other face
-constexpr double lateral = 0.8;         ///< [cells] weight along an edge: it may be curved
+constexpr double flat_cosine = 0.978;  ///< 12 deg: quads round a vertex away from edges
+constexpr double sharp_cosine = 0.906; ///< 25 deg: a vertex worth looking at
+constexpr double edge_cosine = 0.866;  ///< 30 deg between one-sided normals: an edge
+constexpr double third_cosine = 0.707; ///< 45 deg to both faces of an edge: a third face
+constexpr double reach = 4.6;          ///< [cells] faces are fitted within
+constexpr double undisturbed = 1.8;    ///< [cells] of an element's centre from the other face
+constexpr double lateral = 0.8;        ///< [cells] weight along an edge: it may be curved
 
 /// What a fit must show before it counts as an edge.
 struct Demands {
@@ -263,7 +263,7 @@ private:
     }
 
     bool split(std::vector<Sample>& samples, const int (&seed)[3], int count,
-                      LocalSolid& solid) const {
+               LocalSolid& solid) const {
         solid.count = count;
         for (Sample& s : samples) {
             double nearest = -2;

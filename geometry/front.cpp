@@ -31,8 +31,7 @@ void put(std::ostream& out, const T* values, std::size_t count) {
 template <class T>
 void get(std::istream& in, T* values, std::size_t count) {
     in.read(reinterpret_cast<char*>(values), static_cast<std::streamsize>(count * sizeof(T)));
-    if (!in)
-        throw NumericsError("a saved front ends early");
+    if (!in) throw NumericsError("a saved front ends early");
 }
 
 } // namespace
@@ -50,8 +49,7 @@ Front::Front(const Domain& domain, const std::function<double(const Vec3&)>& sig
         for (int j = 0; j < domain.cells_y; ++j)
             for (int i = 0; i < domain.cells_x; ++i) {
                 const double phi = signed_distance(domain.node(i, j, k));
-                if (!(std::fabs(phi) <= reach))
-                    continue;
+                if (!(std::fabs(phi) <= reach)) continue;
                 band.cells.push_back({i, j, k});
                 band.phi.push_back(phi);
             }
@@ -63,8 +61,7 @@ Front::Front(std::unique_ptr<State> state) : state_(std::move(state)) {}
 Front::Front(const Front& other) : state_(std::make_unique<State>(*other.state_)) {}
 Front::Front(Front&&) noexcept = default;
 Front& Front::operator=(const Front& other) {
-    if (this != &other)
-        state_ = std::make_unique<State>(*other.state_);
+    if (this != &other) state_ = std::make_unique<State>(*other.state_);
     return *this;
 }
 Front& Front::operator=(Front&&) noexcept = default;
@@ -97,8 +94,7 @@ double Front::distance(const Vec3& p) const {
         double weight = 1;
         for (int a = 0; a < 3; ++a)
             weight *= (corner >> a & 1) ? part[a] : 1 - part[a];
-        if (weight == 0)
-            continue;
+        if (weight == 0) continue;
         const int i = fold_index(low[0] + (corner & 1), d.cells_x, d.sides);
         const int j = d.extruded() ? 0 : fold_index(low[1] + (corner >> 1 & 1), d.cells_y, d.sides);
         sum += weight * state_->index.phi(band, i, j, low[2] + (corner >> 2 & 1));

@@ -21,7 +21,7 @@ struct Band;
 /// The moving front: a sub-cell level set on a sparse grid. A value type; copying it is how a step
 /// is tried and discarded.
 class Front {
-  public:
+public:
     /// signed_distance(p) [nm], < 0 in the solid, exact within 4 cells of the surface. z_low and
     /// z_high [nm] bound the initial surface (all surface lies between them).
     Front(const Domain& domain, const std::function<double(const Vec3&)>& signed_distance,
@@ -46,7 +46,7 @@ class Front {
     /// OpenVDB file with one float grid "front" [nm], ZIP-compressed, world units nm.
     void write_vdb(const std::string& path) const;
 
-  private:
+private:
     struct State;
     explicit Front(std::unique_ptr<State>);
     std::unique_ptr<State> state_;
@@ -58,17 +58,17 @@ class Front {
 Surface extract_surface(const Front&);
 
 struct AdvanceLimits {
-    double time = 0;          ///< [s] largest time to advance
-    double max_move = 0.5;    ///< [cells] stop when any point has moved this far (arrivals are stale)
-    double max_share = 0.45;  ///< Courant number of one sub-step
+    double time = 0;       ///< [s] largest time to advance
+    double max_move = 0.5; ///< [cells] stop when any point has moved this far (arrivals are stale)
+    double max_share = 0.45; ///< Courant number of one sub-step
 };
 
 struct AdvanceReport {
-    double time = 0;               ///< [s] time advanced, <= limits.time
+    double time = 0; ///< [s] time advanced, <= limits.time
     int sub_steps = 0;
-    double largest_move = 0;       ///< [cells]
-    double redistance_shift = 0;   ///< [cells] largest movement of the contour by redistancing
-    std::vector<double> moved;     ///< [nm] per element of the given surface, along -normal
+    double largest_move = 0;     ///< [cells]
+    double redistance_shift = 0; ///< [cells] largest movement of the contour by redistancing
+    std::vector<double> moved;   ///< [nm] per element of the given surface, along -normal
 };
 
 /// Moves the front at fixed arrivals: second order in space with local Lax-Friedrichs over all

@@ -47,8 +47,7 @@ Box box_of(bool extruded, const Slopes& s) {
 
 Tilt tilt(double horizontal, double vertical) {
     const double length = std::sqrt(horizontal * horizontal + vertical * vertical);
-    if (length == 0)
-        return {};
+    if (length == 0) return {};
     return {std::atan2(horizontal, vertical), horizontal / length, vertical / length};
 }
 
@@ -74,26 +73,21 @@ WaveSpeed over_box(const RateTables& tables, int row, bool extruded, const Box& 
         // The mean slopes lie in the box, so a cone about them as wide as its diagonal holds it.
         const double spread = 1.1 * std::sqrt(square / middle);
         const Tilt low = turned(mean, -spread), up = turned(mean, spread);
-        if (low.angle >= lowest && up.angle <= pi)
-            return tables.wave_speed(row, low, up);
+        if (low.angle >= lowest && up.angle <= pi) return tables.wave_speed(row, low, up);
     }
     const bool holds_origin = b.h_low <= 0 && b.h_high >= 0 && b.z_low <= 0 && b.z_high >= 0;
-    if (holds_origin)
-        return tables.wave_speed(row, full_low, full_high);
+    if (holds_origin) return tables.wave_speed(row, full_low, full_high);
     Tilt corner[4] = {tilt(b.h_low, b.z_low), tilt(b.h_low, b.z_high), tilt(b.h_high, b.z_low),
                       tilt(b.h_high, b.z_high)};
     std::sort(corner, corner + 4, [](const Tilt& a, const Tilt& c) { return a.angle < c.angle; });
     const bool wraps = extruded && b.h_low < 0 && b.h_high > 0 && b.z_high < 0;
-    if (!wraps)
-        return tables.wave_speed(row, corner[0], corner[3]);
+    if (!wraps) return tables.wave_speed(row, corner[0], corner[3]);
     // Facing down across +-pi: the tilts are those above the least positive and below the largest
     // negative corner.
     Tilt positive = full_high, negative = full_low;
     for (const Tilt& t : corner) {
-        if (t.angle > 0 && t.angle < positive.angle)
-            positive = t;
-        if (t.angle < 0 && t.angle > negative.angle)
-            negative = t;
+        if (t.angle > 0 && t.angle < positive.angle) positive = t;
+        if (t.angle < 0 && t.angle > negative.angle) negative = t;
     }
     return most(tables.wave_speed(row, positive, full_high),
                 tables.wave_speed(row, full_low, negative));
@@ -101,8 +95,7 @@ WaveSpeed over_box(const RateTables& tables, int row, bool extruded, const Box& 
 
 std::array<double, 3> of_row(const RateTables& tables, int row, bool extruded, const Slopes& s,
                              const Tilt& mean) {
-    if (row < 0)
-        return {0, 0, 0};
+    if (row < 0) return {0, 0, 0};
     double low[3], high[3];
     for (int a = 0; a < 3; ++a) {
         low[a] = least_magnitude(s.minus[a], s.plus[a]);
@@ -119,8 +112,7 @@ std::array<double, 3> of_row(const RateTables& tables, int row, bool extruded, c
                 rate * share(high[2], low[0] * low[0] + low[1] * low[1])};
     }
     const WaveSpeed w = over_box(tables, row, extruded, box_of(extruded, s), mean);
-    if (extruded)
-        return {w.horizontal, 0, w.vertical};
+    if (extruded) return {w.horizontal, 0, w.vertical};
     return {w.horizontal * share(high[0], low[1] * low[1]),
             w.horizontal * share(high[1], low[0] * low[0]), w.vertical};
 }
@@ -138,8 +130,7 @@ RateTables::RateTables(const NormalRates& rates) : rates_(rates) {
     for (std::size_t a = 0; a < n; ++a) {
         sine_.push_back(std::sin(angle[a]));
         cosine_.push_back(std::cos(angle[a]));
-        if (a + 1 < n)
-            inverse_width_.push_back(1 / (angle[a + 1] - angle[a]));
+        if (a + 1 < n) inverse_width_.push_back(1 / (angle[a + 1] - angle[a]));
     }
     const int bins = static_cast<int>(4 * n);
     bins_per_radian_ = bins / (angle.back() - angle.front());
@@ -193,12 +184,9 @@ WaveSpeed RateTables::wave_speed(int row, const Tilt& low, const Tilt& high) con
             take(high.angle, high.sine, high.cosine);
         else
             take(to, sine_[s + 1], cosine_[s + 1]);
-        if (from < 0 && to > 0)
-            take(0, 0, 1);
-        if (from < 0.5 * pi && to > 0.5 * pi)
-            take(0.5 * pi, 1, 0);
-        if (from < -0.5 * pi && to > -0.5 * pi)
-            take(-0.5 * pi, -1, 0);
+        if (from < 0 && to > 0) take(0, 0, 1);
+        if (from < 0.5 * pi && to > 0.5 * pi) take(0.5 * pi, 1, 0);
+        if (from < -0.5 * pi && to > -0.5 * pi) take(-0.5 * pi, -1, 0);
     }
     return out;
 }

@@ -35,10 +35,8 @@ public:
     explicit RateTables(const NormalRates& rates);
     /// Rate of `row` [nm/s]; row -1 has rate 0.
     double rate(int row, double angle) const {
-        if (row < 0)
-            return 0;
-        if (constant_[row])
-            return values(row)[0];
+        if (row < 0) return 0;
+        if (constant_[row]) return values(row)[0];
         const int s = segment(angle);
         const double* v = values(row) + s;
         return v[0] + (v[1] - v[0]) * ((angle - rates_.angles[s]) * inverse_width_[s]);

@@ -13,7 +13,7 @@ constexpr double endless = std::numeric_limits<double>::infinity();
 constexpr double just_inside =
     1e-9; ///< [cells] a point on an interface counts for the solid's side
 constexpr double corner_inside = 0.2; ///< [cells] corners of the contour are known no better
-constexpr double thin_share = 0.05; ///< of the thickness of a thin film
+constexpr double thin_share = 0.05;   ///< of the thickness of a thin film
 } // namespace
 
 double walk(const RateTables& tables, const Layers& layers, double angle, double time,
@@ -37,11 +37,9 @@ Foot foot_of(const Vec3& p, double phi, const Vec3& nearest, const Vec3& normal,
     Foot foot{nearest, -normal, false};
     Vec3 line = phi < 0 ? p - nearest : nearest - p;
     const double length = line.length();
-    if (length < 0.05 * spacing)
-        return foot;
+    if (length < 0.05 * spacing) return foot;
     line /= length;
-    if (line.dot(foot.inward) > 1 - 1e-4)
-        return foot;
+    if (line.dot(foot.inward) > 1 - 1e-4) return foot;
     foot.inward = line;
     foot.corner = true;
     return foot;
@@ -53,8 +51,7 @@ LayerFinder::LayerFinder(const Band& band, const NormalRates& rates, const RateT
 
 bool LayerFinder::near(int element, double z, double reach) const {
     for (const std::vector<double>& thickness : films_.thickness)
-        if (thickness[element] > 0)
-            return true;
+        if (thickness[element] > 0) return true;
     return stack_.film_at(z + reach) != stack_.film_at(z - reach);
 }
 
@@ -62,8 +59,7 @@ bool LayerFinder::near(int element, double z, double reach) const {
 /// of corners, which would skip it.
 double LayerFinder::step_inside(const Foot& foot) const {
     const double h = band_.domain.spacing;
-    if (!foot.corner)
-        return just_inside * h;
+    if (!foot.corner) return just_inside * h;
     const Film& film =
         stack_.films()[stack_.film_at(foot.point.z + just_inside * h * foot.inward.z)];
     return std::min(corner_inside * h, thin_share * (film.top - film.bottom));
@@ -81,8 +77,7 @@ double LayerFinder::grown(int element, Layers& out) const {
     double sum = 0;
     for (int f = static_cast<int>(films_.thickness.size()) - 1; f >= 0; --f) {
         const double thickness = films_.thickness[f][element];
-        if (thickness <= 0)
-            continue;
+        if (thickness <= 0) continue;
         out.add(rates_.row(element, films_.material[f]), thickness);
         sum += thickness;
     }
@@ -100,8 +95,7 @@ void LayerFinder::stack_below(int element, Foot foot, double reach, Layers& out)
         gone += depth;
         const bool blocked = !tables_.moves(row);
         out.add(row, blocked || gone > reach ? endless : depth);
-        if (blocked || gone > reach)
-            return;
+        if (blocked || gone > reach) return;
         foot.point += inward * depth;
         foot.corner = false;
     }
@@ -110,8 +104,7 @@ void LayerFinder::stack_below(int element, Foot foot, double reach, Layers& out)
 void LayerFinder::below(int element, const Foot& foot, double reach, Layers& out) const {
     out.count = 0;
     const double films = grown(element, out);
-    if (films > reach)
-        return;
+    if (films > reach) return;
     stack_below(element, {foot.point + foot.inward * films, foot.inward, foot.corner},
                 reach - films, out);
 }
@@ -124,23 +117,19 @@ double LayerFinder::limit(std::size_t cell, const double* phi, double steep, int
     const int own = stack_.film_at(z);
     after = -1;
     if (phi[cell] < 0) {
-        if (own == from)
-            return endless;
+        if (own == from) return endless;
         // The interface of film `from` that faces the cell.
         const double gap = own > from ? films[from].bottom - z : z - films[from].top;
         after = own > from ? from + 1 : from - 1;
         return std::max(0.0, (-phi[cell] - std::max(0.0, gap)) / slope);
     }
-    if (own != from)
-        return endless;
+    if (own != from) return endless;
     double least = endless;
     for (int side = 4; side < 6; ++side) {
         const int n = band_.neighbour[cell][side];
-        if (n < 0 || phi[n] >= 0)
-            continue;
+        if (n < 0 || phi[n] >= 0) continue;
         const int other = stack_.film_at((band_.cells[n].k + 0.5) * h);
-        if (other == own)
-            continue;
+        if (other == own) continue;
         const double gap = other > own ? z - films[own].bottom : films[own].top - z;
         const double left = std::max(0.0, (gap - phi[cell]) / slope);
         if (left < least) {
@@ -158,8 +147,7 @@ unsigned LayerFinder::slow_sides(std::size_t cell, const double* phi, int elemen
     unsigned sides = 0;
     for (int side = 4; side < 6; ++side) {
         const int n = band_.neighbour[cell][side];
-        if (n < 0 || phi[n] >= 0)
-            continue;
+        if (n < 0 || phi[n] >= 0) continue;
         const int other = stack_.film_at((band_.cells[n].k + 0.5) * h);
         if (other != own && tables_.rate(row_of_film(element, other), angle) <
                                 0.5 * tables_.rate(row_of_film(element, own), angle))
@@ -176,8 +164,7 @@ unsigned LayerFinder::unseen_sides(std::size_t cell, const double* phi, int elem
 
 bool LayerFinder::pinned(std::size_t cell, const double* phi, int element, double angle) const {
     const double h = band_.domain.spacing, z = (band_.cells[cell].k + 0.5) * h;
-    if (phi[cell] <= 0)
-        return false;
+    if (phi[cell] <= 0) return false;
     const unsigned sides = slow_sides(cell, phi, element, angle);
     const Film& own = stack_.films()[stack_.film_at(z)];
     return ((sides >> 4 & 1) && phi[cell] > z - own.bottom - 0.1 * h) ||
@@ -188,8 +175,7 @@ void LayerFinder::for_cell(std::size_t cell, const double* phi, double steep, in
                            const Foot& foot, double reach, Layers& out) const {
     out.count = 0;
     const double films = grown(element, out);
-    if (films > reach)
-        return;
+    if (films > reach) return;
     const Foot base{foot.point + foot.inward * films, foot.inward, foot.corner};
     const int from = film_inside(base);
     int after = -1;
@@ -209,8 +195,7 @@ void LayerFinder::for_cell(std::size_t cell, const double* phi, double steep, in
         gone += f.top - f.bottom;
         const bool end = gone > reach || !tables_.moves(row);
         out.add(row, end ? endless : f.top - f.bottom);
-        if (end)
-            return;
+        if (end) return;
     }
 }
 

@@ -19,8 +19,7 @@ struct Layers {
     std::array<double, capacity> thickness{};
 
     void add(int table_row, double depth) {
-        if (count == capacity)
-            return;
+        if (count == capacity) return;
         row[count] = {table_row, -1, 0};
         thickness[count++] = depth;
     }

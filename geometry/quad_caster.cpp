@@ -28,10 +28,10 @@ struct StartContext {
     RTCIntersectContext context; // must come first: Embree hands its address back
     const std::vector<Vec3>* vertices;
     const std::vector<std::array<int, 4>>* quads;
-    int own_quad;  ///< of the element the ray leaves; -1 after a fold and for none
-    int own_facet; ///< likewise
+    int own_quad;                  ///< of the element the ray leaves; -1 after a fold and for none
+    int own_facet;                 ///< likewise
     Vec3 from_centre, from_normal; ///< of the facet
-    float near; ///< hits before this ray parameter are at the start of the ray
+    float near;                    ///< hits before this ray parameter are at the start of the ray
 };
 
 } // namespace
@@ -40,11 +40,11 @@ struct QuadCaster::Scene {
     RTCDevice device = nullptr;
     RTCScene scene = nullptr;
     std::vector<Vec3> vertices;
-    std::vector<std::array<int, 4>> quads; ///< the elements first, then their images
-    std::vector<int> source;               ///< element of each quad
+    std::vector<std::array<int, 4>> quads;         ///< the elements first, then their images
+    std::vector<int> source;                       ///< element of each quad
     std::vector<std::array<signed char, 2>> image; ///< periods by which each quad is moved
     std::vector<Vec3> out; ///< of each vertex of the period: area-weighted sum of normals
-    Vec3 middle;                                   ///< subtracted from what Embree sees
+    Vec3 middle;           ///< subtracted from what Embree sees
 
     ~Scene() {
         if (scene) rtcReleaseScene(scene);

@@ -39,7 +39,7 @@ private:
     Domain domain_;
     double z_open_ = 0;
     double z_top_ = 0, z_bottom_ = 0; ///< no element lies above or below
-    double slack_ = 0; ///< [nm] what single precision may do to a distance
+    double slack_ = 0;                ///< [nm] what single precision may do to a distance
     std::unique_ptr<Scene> scene_;
 };
 

@@ -19,8 +19,7 @@ bool steepness_off(const Band& band, std::size_t c) {
     double least = 0, most = 0;
     for (int axis = 0; axis < 3; ++axis) {
         const int left = band.neighbour[c][2 * axis], right = band.neighbour[c][2 * axis + 1];
-        if (left < 0 && right < 0)
-            continue;
+        if (left < 0 && right < 0) continue;
         const double back = band.phi[c] - band.phi[left < 0 ? right : left];
         const double ahead = band.phi[c] - band.phi[right < 0 ? left : right];
         least += std::min(back * back, ahead * ahead);
@@ -32,8 +31,7 @@ bool steepness_off(const Band& band, std::size_t c) {
 
 /// How far the crossing between a cell and its neighbour moves [cells]; 0 if there is none.
 double crossing_shift(double a, double b, double new_a, double new_b) {
-    if ((a < 0) == (b < 0))
-        return 0;
+    if ((a < 0) == (b < 0)) return 0;
     return std::fabs(a / (a - b) - new_a / (new_a - new_b));
 }
 
@@ -49,10 +47,8 @@ double redistance(Band& band, const Surface& surface, const ClosestElements& clo
     });
     std::vector<int> changed;
     for (std::size_t c = 0; c < band.size(); ++c)
-        if (flag[c])
-            changed.push_back(static_cast<int>(c));
-    if (changed.empty())
-        return 0;
+        if (flag[c]) changed.push_back(static_cast<int>(c));
+    if (changed.empty()) return 0;
 
     const std::vector<double> old = band.phi;
     for (const int c : changed) {
@@ -78,8 +74,8 @@ double redistance(Band& band, const Surface& surface, const ClosestElements& clo
         back.clear();
         for (const int c : changed) {
             const auto moves = [&](int n) {
-                return n >= 0 && crossing_shift(old[c], old[n], band.phi[c], band.phi[n]) >
-                                     redistance_limit;
+                return n >= 0 &&
+                       crossing_shift(old[c], old[n], band.phi[c], band.phi[n]) > redistance_limit;
             };
             if (flag[c] && std::any_of(band.neighbour[c].begin(), band.neighbour[c].end(), moves))
                 back.push_back(c);

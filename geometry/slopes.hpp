@@ -18,8 +18,7 @@ struct Slopes {
 };
 
 inline double minmod(double a, double b) {
-    if (a * b <= 0)
-        return 0;
+    if (a * b <= 0) return 0;
     return std::fabs(a) < std::fabs(b) ? a : b;
 }
 
@@ -27,16 +26,13 @@ inline void slopes_along(const Band& band, const double* phi, std::size_t cell,
                          double inverse_spacing, int axis, unsigned unseen, Slopes& out) {
     const int c = static_cast<int>(cell);
     int left = band.neighbour[c][2 * axis], right = band.neighbour[c][2 * axis + 1];
-    if (unseen >> 2 * axis & 1)
-        left = -1;
-    if (unseen >> (2 * axis + 1) & 1)
-        right = -1;
+    if (unseen >> 2 * axis & 1) left = -1;
+    if (unseen >> (2 * axis + 1) & 1) right = -1;
     const double here = phi[c];
     if (left < 0 || right < 0) {
         // The edge of the band: second-order differences from the side that is there.
         const int side = left < 0 ? 2 * axis + 1 : 2 * axis, next = left < 0 ? right : left;
-        if (next < 0)
-            return;
+        if (next < 0) return;
         const int next2 = band.neighbour[next][side];
         const double near = phi[next] - here, bend = next2 < 0 ? 0 : phi[next2] - phi[next] - near;
         const double slope = (near - 0.5 * bend) * (left < 0 ? inverse_spacing : -inverse_spacing);

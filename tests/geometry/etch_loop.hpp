@@ -102,8 +102,7 @@ inline LoopResult etch(Front& front, const Loop& loop, double time) {
         out.sub_steps += report.sub_steps;
         out.shift += report.redistance_shift;
         out.time += report.time;
-        if (report.time == 0)
-            break;
+        if (report.time == 0) break;
     }
     return out;
 }
@@ -120,12 +119,9 @@ double worst_vertex(const Surface& s, const Distance& exact) {
 /// Mask of the given thickness on z <= 0 with an opening |x| < half: exact distance.
 inline double mask_distance(const Vec3& p, double half, double thickness) {
     const double in = half - std::fabs(p.x); // > 0 inside the opening
-    if (p.z > thickness)
-        return in < 0 ? p.z - thickness : std::hypot(in, p.z - thickness);
-    if (in >= 0 && p.z >= 0)
-        return std::min(in, p.z);
-    if (in < 0 && p.z >= 0)
-        return -std::min(-in, thickness - p.z);
+    if (p.z > thickness) return in < 0 ? p.z - thickness : std::hypot(in, p.z - thickness);
+    if (in >= 0 && p.z >= 0) return std::min(in, p.z);
+    if (in < 0 && p.z >= 0) return -std::min(-in, thickness - p.z);
     return -std::min(in > 0 ? -p.z : std::hypot(in, p.z), thickness - p.z);
 }
 

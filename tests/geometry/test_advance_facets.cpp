@@ -19,8 +19,7 @@ constexpr double steepest = 2.291288; // slope of largest yield
 /// Speed of a lit surface, Y(t) cos t with Y = s^2 exp(-0.8 (s - 1)), s = 1 / cos t.
 double sputter(double angle) {
     const double cosine = std::cos(angle);
-    if (std::fabs(angle) >= pi / 2 || cosine < 1e-9)
-        return 0;
+    if (std::fabs(angle) >= pi / 2 || cosine < 1e-9) return 0;
     return std::exp(-0.8 * (1 / cosine - 1)) / cosine;
 }
 
@@ -111,8 +110,7 @@ FacetErrors valley(double width, double shift) {
     const Surface s = extract_surface(front);
     for (std::size_t e = 0; e < s.size(); ++e) {
         const Vec3 p(std::fabs(s.centre[e].x - shift), 0, s.centre[e].z);
-        if (p.x < 0.9 * time)
-            take(out, distance_to(exact, p), s.area[e], total);
+        if (p.x < 0.9 * time) take(out, distance_to(exact, p), s.area[e], total);
     }
     out.mean /= total;
     return out;

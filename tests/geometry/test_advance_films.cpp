@@ -47,8 +47,7 @@ double wall_error(double tilt_deg, double& tilt_out) {
     Loop loop;
     loop.angles = even_angles(-pi, pi, 7200);
     loop.law = [=](const Surface& s, int e, int, double angle) {
-        if (s.centre[e].z > -0.5)
-            return 0.0;
+        if (s.centre[e].z > -0.5) return 0.0;
         const double side = s.centre[e].x < 0 ? 1 : -1;
         return std::max(0.0, std::cos(angle + side * tilt));
     };
@@ -57,8 +56,7 @@ double wall_error(double tilt_deg, double& tilt_out) {
     REQUIRE(r.sub_steps >= 500);
     double worst = 0, sx = 0, sz = 0, sxz = 0, szz = 0, n = 0;
     for (const Vec3& v : extract_surface(front).vertices) {
-        if (v.x > 0 || v.z > -32 || v.z < -54)
-            continue;
+        if (v.x > 0 || v.z > -32 || v.z < -54) continue;
         const double wall = (half - std::fabs(v.x)) * std::cos(tilt) + v.z * std::sin(tilt);
         worst = std::max(worst, std::fabs(wall));
         sx += v.x, sz += v.z, sxz += v.x * v.z, szz += v.z * v.z, n += 1;

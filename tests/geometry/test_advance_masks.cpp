@@ -65,8 +65,7 @@ WedgeErrors wedge(double a, double depth, double shift, double base) {
     Loop loop = masked_loop(base);
     loop.angles = even_angles(-pi, pi, 720);
     loop.law = [=](const Surface& s, int e, int material, double angle) {
-        if (material == 1)
-            return 0.0;
+        if (material == 1) return 0.0;
         const bool lit = std::fabs(s.centre[e].x - shift) < opening / 2 && s.normal[e].z > 0;
         return a + (lit ? (1 - a) * std::max(0.0, std::cos(angle)) : 0.0);
     };
@@ -75,8 +74,7 @@ WedgeErrors wedge(double a, double depth, double shift, double base) {
     WedgeErrors out;
     for (const Vec3& v : extract_surface(front).vertices) {
         const double x = std::fabs(v.x - shift) - opening / 2, z = v.z - base;
-        if (z > -0.5)
-            continue;
+        if (z > -0.5) continue;
         const double line = x * std::cos(beta) - (z + depth) * std::sin(beta);
         const double wall = z >= tangent ? std::hypot(x, z) - a * depth : line;
         if (x < -4)
@@ -143,8 +141,7 @@ TEST_CASE("a tilted beam cuts a parallel slot", "[advance][mask]") {
     Loop loop = masked_loop(0);
     loop.angles = even_angles(-pi, pi, 720);
     loop.law = [=](const Surface& s, int e, int material, double angle) {
-        if (material == 1)
-            return 0.0;
+        if (material == 1) return 0.0;
         const double x = s.centre[e].x - s.centre[e].z * -std::tan(alpha); // back to z = 0
         const bool lit = x > -w / 2 + thickness * std::tan(alpha) && x < w / 2;
         return lit ? std::max(0.0, std::cos(angle + alpha)) : 0.0;
@@ -154,8 +151,7 @@ TEST_CASE("a tilted beam cuts a parallel slot", "[advance][mask]") {
     const double left = -w / 2 + thickness * slope, right = w / 2;
     double floor = 0, wall = 0;
     for (const Vec3& v : extract_surface(front).vertices) {
-        if (v.z > -4)
-            continue;
+        if (v.z > -4) continue;
         const double x = v.x + v.z * slope; // along the beam up to z = 0
         if (x > left + 4 && x < right - 4)
             floor = std::max(floor, std::fabs(v.z + depth));
@@ -188,10 +184,8 @@ TEST_CASE("a mask of half a cell holds still", "[advance][mask]") {
         const LoopResult r = etch(front, loop, 50);
         double most = 0, deepest = 0;
         for (const Vec3& v : extract_surface(front).vertices) {
-            if (std::fabs(v.x) > 12)
-                most = std::max(most, std::fabs(v.z - base - 0.5));
-            if (std::fabs(v.x) < 6)
-                deepest = std::min(deepest, v.z);
+            if (std::fabs(v.x) > 12) most = std::max(most, std::fabs(v.z - base - 0.5));
+            if (std::fabs(v.x) < 6) deepest = std::min(deepest, v.z);
         }
         CAPTURE(base, most, deepest, r.sub_steps);
         CHECK(r.sub_steps >= 1000);

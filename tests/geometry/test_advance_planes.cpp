@@ -11,8 +11,7 @@ namespace {
 /// Distance to the square |x|, |z - z0| <= half, > 0 outside.
 double square_distance(const Vec3& p, double z0, double half) {
     const double x = std::fabs(p.x) - half, z = std::fabs(p.z - z0) - half;
-    if (x > 0 && z > 0)
-        return std::hypot(x, z);
+    if (x > 0 && z > 0) return std::hypot(x, z);
     return std::max(x, z);
 }
 
@@ -95,8 +94,8 @@ TEST_CASE("squares shrink with sharp corners", "[advance]") {
 
 TEST_CASE("squares grow with round corners", "[advance]") {
     // Oracle: area s^2 + 4 s t + pi t^2. Source: derived here (offsets of convex bodies).
-    // Tolerance: 0.25 cell on the rounded corners is asked, 0.5 held (a fan starts at a point that no
-    // cell resolves); 0.15 cell over the perimeter.
+    // Tolerance: 0.25 cell on the rounded corners is asked, 0.5 held (a fan starts at a point that
+    // no cell resolves); 0.15 cell over the perimeter.
     const Domain d = make_domain(Symmetry::extruded, Sides::periodic, 1.0, 80);
     Front front(
         d, [&](const Vec3& p) { return square_distance(p, 0.2, 15.3); }, -15.1, 15.5);

@@ -37,8 +37,7 @@ Loop sputter(Symmetry symmetry) {
 }
 
 bool same(const Front& a, const Front& b) {
-    if (a.band().size() != b.band().size())
-        return false;
+    if (a.band().size() != b.band().size()) return false;
     for (std::size_t c = 0; c < a.band().size(); ++c) {
         const Band::Cell &p = a.band().cells[c], &q = b.band().cells[c];
         if (p.i != q.i || p.j != q.j || p.k != q.k || a.band().phi[c] != b.band().phi[c])
@@ -98,8 +97,7 @@ TEST_CASE("a mirrored half equals the periodic whole", "[front]") {
     for (std::size_t c = 0; c < whole.band().size(); ++c) {
         const Band::Cell& cell = whole.band().cells[c];
         const Vec3 p = whole.domain().node(cell.i, 0, cell.k);
-        if (std::fabs(whole.band().phi[c]) > 1)
-            continue;
+        if (std::fabs(whole.band().phi[c]) > 1) continue;
         across = std::max(across, std::fabs(whole.distance(p) - whole.distance({-p.x, 0, p.z})));
         if (p.x > 0)
             mirror =

@@ -98,9 +98,9 @@ TEST_CASE("a vertical beam etches a via straight down", "[validation][via]") {
 // Oracle: isotropic etching by distance t under a round opening of radius R removes
 //         pi R^2 t + pi^2 R t^2 / 2 + 2 pi t^3 / 3.
 // Source: parallel body of a disk, derived here.
-// Tolerance: at 16 cells across and 3 cells of depth 27 % of the volume is missing (measured): round
-// edges are contoured without their sharp foot, which holds the undercut of the mask back. The goal
-// is 2 %; the check guards what is achieved. 10 % less must fail.
+// Tolerance: at 16 cells across and 3 cells of depth 27 % of the volume is missing (measured):
+// round edges are contoured without their sharp foot, which holds the undercut of the mask back.
+// The goal is 2 %; the check guards what is achieved. 10 % less must fail.
 TEST_CASE("isotropic etching undercuts a round opening", "[validation][via]") {
     TrenchCase t = via_case(96, 2, 32, 32);
     const int radical = t.add_neutral("F", 5e5); // so much that the etch uses none up

@@ -1,6 +1,6 @@
 #!/usr/bin/env bash
 # SPDX-License-Identifier: Apache-2.0
-# The examples run to their end at reduced size and give sensible results.
+# The contact example at reduced size runs to its end and gives sensible results.
 set -uo pipefail
 rille=$1
 root=$(cd "$(dirname "$0")/../.." && pwd)

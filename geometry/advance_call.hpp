@@ -1,0 +1,102 @@
+// SPDX-License-Identifier: Apache-2.0
+#pragma once
+
+#include "geometry/band.hpp"
+#include "geometry/between_centres.hpp"
+#include "geometry/closest_element.hpp"
+#include "geometry/front.hpp"
+#include "geometry/hamiltonian.hpp"
+#include "geometry/layers.hpp"
+
+#include <limits>
+#include <vector>
+
+namespace rille::geometry {
+
+constexpr int layered_row = -2;       ///< marks cells whose row depends on where the front is
+constexpr double layer_reach = 0.6;   ///< [cells] more than any sub-step moves
+constexpr double refresh_move = 0.75; ///< [cells] nearest elements and band hold for this far
+constexpr double resting_share =
+    0.5; ///< a wall rests if slower than this share of the front beside it
+
+/// A cell near an interface or a grown film, or beside a wall that rests: where its foot was when
+/// phi was phi0.
+struct LayeredCell {
+    int cell = 0;
+    Foot foot;
+    double phi0 = 0;
+    unsigned resting = 0; ///< sides (bits) whose neighbour belongs to a wall that rests
+    unsigned unseen = 0;  ///< sides behind an interface that the front runs along
+    unsigned beside = 0;  ///< sides whose neighbour is nearer to a resting wall than to this front
+    double wall = std::numeric_limits<double>::infinity(); ///< [nm] bound of phi at a resting wall
+    double wall_rate = 0;
+    bool directional = false; ///< the rate below the foot depends on the normal
+    Layers layers;
+    BetweenCentres place;
+};
+
+struct Speed {
+    double waves = 0; ///< sum of |dH/dp| along the axes [nm/s]
+    double rate = 0;  ///< of the front along its normal [nm/s]
+};
+
+/// One call of `advance`.
+class Advance {
+public:
+    Advance(Front& front, const Surface& surface, const NormalRates& rates, const Stack& stack,
+            GrownFilms& films, const std::vector<int>& growth_film, const AdvanceLimits& limits)
+        : front_(front), band_(front.band()), surface_(surface), rates_(rates), tables_(rates),
+          films_(films), growth_film_(growth_film), limits_(limits),
+          finder_(band_, rates, tables_, stack, films), extruded_(band_.domain.extruded()),
+          h_(band_.domain.spacing) {
+        report_.moved.assign(surface.size(), 0.0);
+    }
+
+    AdvanceReport run();
+
+private:
+    void refresh();
+    void classify_cells(const ClosestElements&);
+    void classify_elements();
+    BetweenCentres place_of(std::size_t c, const ClosestElements&) const;
+    unsigned resting_sides(std::size_t c) const;
+    void find_wall(LayeredCell&) const;
+    Slopes special_slopes(const double* phi, const LayeredCell&) const;
+    Slopes slopes(const double* phi, std::size_t c, unsigned unseen = 0) const {
+        return extruded_ ? slopes_2d(band_, phi, c, 1 / h_, unseen)
+                         : slopes_3d(band_, phi, c, 1 / h_, unseen);
+    }
+    double change(const Slopes&, const RowPair&, Speed&) const;
+    void blend(RowPair&, const BetweenCentres&) const;
+    double layered_change(const Slopes&, const Layers&, double dt) const;
+    Speed first_stage();
+    void find_layers(LayeredCell&, Speed&);
+    double choose_step(const Speed&) const;
+    void step(double dt);
+    void move_elements(double dt);
+    void take_from_films(int e, double dt);
+
+    Front& front_;
+    Band& band_;
+    const Surface& surface_;
+    const NormalRates& rates_;
+    RateTables tables_;
+    GrownFilms& films_;
+    const std::vector<int>& growth_film_;
+    const AdvanceLimits& limits_;
+    LayerFinder finder_;
+    bool extruded_;
+    double h_;
+    AdvanceReport report_;
+    double moved_since_refresh_ = 0; ///< [cells]
+    double time_of_refresh_ = 0;     ///< [s]
+    std::vector<int> element_;
+    std::vector<RowPair> row_;
+    std::vector<double> slope_, next_; ///< dphi/dt at the first stage; phi after it
+    std::vector<LayeredCell> layered_;
+    std::vector<int> layered_elements_;
+    std::vector<Tilt> element_tilt_;
+    std::vector<double> element_rate_, own_rate_; ///< own: before films are peeled
+};
+
+} // namespace rille::geometry

@@ -1,0 +1,176 @@
+// SPDX-License-Identifier: Apache-2.0
+// What each cell of the band moves by: nearest element, rows of rates, films and walls about it.
+#include "geometry/advance_call.hpp"
+#include "geometry/band_topology.hpp"
+#include "geometry/check.hpp"
+#include "geometry/redistance.hpp"
+
+#include <algorithm>
+#include <cmath>
+
+namespace rille::geometry {
+
+/// Nearest elements, redistancing and rows for the present band; `surface` displaced by `moved`.
+void Advance::refresh() {
+    const bool first = report_.sub_steps == 0;
+    if (!first) front_.rebuild();
+    const ClosestElements closest =
+        closest_elements(band_, surface_, first ? std::vector<double>() : report_.moved);
+    if (first) report_.redistance_shift = redistance(band_, surface_, closest);
+    // Nothing of the front is left near such cells: they drop out of the band.
+    for (std::size_t c = 0; c < band_.size(); ++c)
+        if (closest.element[c] < 0) band_.phi[c] = std::copysign(4 * h_, band_.phi[c]);
+    classify_elements();
+    classify_cells(closest);
+    slope_.assign(band_.size(), 0.0);
+    next_ = band_.phi;
+    moved_since_refresh_ = 0;
+    time_of_refresh_ = report_.time;
+}
+
+void Advance::classify_cells(const ClosestElements& closest) {
+    const double reach = (refresh_move + 2 * layer_reach + 0.5) * h_;
+    element_ = closest.element;
+    row_.assign(band_.size(), {});
+    for_ranges(band_.size(), [&](std::size_t begin, std::size_t end) {
+        for (std::size_t c = begin; c < end; ++c) {
+            const int e = element_[c];
+            if (e < 0) continue;
+            const Band::Cell& cell = band_.cells[c];
+            const double z = (cell.k + 0.5) * h_, z_foot = closest.foot[c].z;
+            const double middle = 0.5 * (z + z_foot), spread = 0.5 * std::fabs(z - z_foot);
+            if (finder_.near(e, middle, reach + spread) || resting_sides(c))
+                row_[c].row = layered_row;
+            else
+                row_[c].row = finder_.row_below(e, {closest.foot[c], -surface_.normal[e], false});
+            blend(row_[c], place_of(c, closest));
+        }
+    });
+    layered_.clear();
+    for (std::size_t c = 0; c < band_.size(); ++c)
+        if (row_[c].row == layered_row) {
+            layered_.emplace_back();
+            layered_.back().cell = static_cast<int>(c);
+            const Band::Cell& cell = band_.cells[c];
+            layered_.back().foot = foot_of(band_.domain.node(cell.i, cell.j, cell.k), band_.phi[c],
+                                           closest.foot[c], surface_.normal[element_[c]], h_);
+            layered_.back().phi0 = band_.phi[c];
+            layered_.back().resting = resting_sides(c);
+            layered_.back().place = place_of(c, closest);
+            find_wall(layered_.back());
+        }
+}
+
+/// Where on the surface, as it was when the rates were found, the foot of a cell lies.
+BetweenCentres Advance::place_of(std::size_t c, const ClosestElements& closest) const {
+    return between_centres(band_.domain, surface_, closest.element[c], closest.foot[c]);
+}
+
+/// Takes in the row that the neighbour has for the same material.
+void Advance::blend(RowPair& rows, const BetweenCentres& place) const {
+    if (rows.row < 0 || place.partner < 0) return;
+    rows.other = rates_.row(place.partner, rates_.material[rows.row]);
+    rows.share = rows.other < 0 ? 0 : place.share;
+}
+
+/// Sides where the front of cell c meets one that turns by more than 45 degrees and rests, or
+/// nearly.
+unsigned Advance::resting_sides(std::size_t c) const {
+    const int e = element_[c];
+    const double rate = own_rate_[e];
+    if (rate <= 0) return 0;
+    unsigned sides = 0;
+    for (int side = 0; side < 6; ++side) {
+        const int n = band_.neighbour[c][side], other = n < 0 ? -1 : element_[n];
+        if (other < 0 || other == e || std::fabs(own_rate_[other]) > resting_share * rate) continue;
+        if (surface_.normal[e].dot(surface_.normal[other]) < 0.7) sides |= 1u << side;
+    }
+    return sides;
+}
+
+/// A front that runs down along a resting wall leaves the wall behind it: at an inner edge the
+/// distance to the surface is at most the distance to the wall's plane, on either side of it.
+void Advance::find_wall(LayeredCell& at) const {
+    const std::size_t c = at.cell;
+    const int e = element_[c];
+    const Band::Cell& cell = band_.cells[c];
+    const Vec3 p = band_.domain.node(cell.i, cell.j, cell.k);
+    const auto apart = [this](Vec3 d) {
+        if (band_.domain.sides == Sides::periodic) {
+            const double wx = band_.domain.width_x(), wy = band_.domain.width_y();
+            d.x -= wx * std::round(d.x / wx);
+            if (!extruded_) d.y -= wy * std::round(d.y / wy);
+        }
+        return d;
+    };
+    for (int side = 0; side < 6; ++side) {
+        if (!(at.resting >> side & 1)) continue;
+        const int w = element_[band_.neighbour[c][side]];
+        const Vec3& n = surface_.normal[w];
+        const Vec3 wall = surface_.centre[w] - n * report_.moved[w];
+        const Vec3 front = surface_.centre[e] - surface_.normal[e] * report_.moved[e];
+        if (apart(wall - front).dot(surface_.normal[e]) <= 0) continue;
+        const double distance = apart(p - wall).dot(n);
+        if (distance >= at.wall) continue;
+        at.wall = distance;
+        // What the front lays bare of the wall recedes as the front's film does at that normal.
+        const int row = finder_.row_below(e, at.foot);
+        at.wall_rate = std::max(own_rate_[w], tables_.rate(row, element_tilt_[w].angle));
+    }
+    at.wall = std::max(at.wall, at.phi0);
+}
+
+void Advance::classify_elements() {
+    const double reach = (refresh_move + 2 * layer_reach) * h_;
+    element_tilt_.resize(surface_.size());
+    element_rate_.assign(surface_.size(), 0.0);
+    layered_elements_.clear();
+    for (std::size_t e = 0; e < surface_.size(); ++e) {
+        const Vec3& n = surface_.normal[e];
+        const Vec3 p = surface_.centre[e] - n * report_.moved[e];
+        const int id = static_cast<int>(e);
+        element_tilt_[e] = tilt_of(extruded_, n.x, n.y, n.z);
+        const int row = finder_.row_below(id, {p, -n, false});
+        element_rate_[e] = tables_.rate(row, element_tilt_[e].angle);
+        // Growth starts a film, so such elements are layered too.
+        if (element_rate_[e] < 0 || finder_.near(id, p.z, reach)) layered_elements_.push_back(id);
+    }
+    own_rate_ = element_rate_;
+    for (const int e : layered_elements_)
+        element_rate_[e] = 0;
+}
+
+void Advance::find_layers(LayeredCell& at, Speed& most) {
+    const std::size_t c = at.cell;
+    const int e = element_[c];
+    const double* phi = band_.phi.data();
+    Slopes s = slopes(phi, c);
+    const auto length = [&] {
+        return std::sqrt(s.mean(0) * s.mean(0) + s.mean(1) * s.mean(1) + s.mean(2) * s.mean(2));
+    };
+    Foot foot = at.foot;
+    foot.point += foot.inward * ((phi[c] - at.phi0) / std::max(length(), 0.5));
+    at.unseen = finder_.unseen_sides(c, phi, e, foot, element_tilt_[e].angle);
+    at.directional = !tables_.constant(finder_.row_below(e, foot));
+    at.beside = 0;
+    for (int side = 0; side < 6; ++side) {
+        const int next = band_.neighbour[c][side];
+        if (next < 0 || (at.unseen >> side & 1)) continue;
+        if (!(at.resting >> side & 1) && !finder_.pinned(next, phi, e, element_tilt_[e].angle))
+            continue;
+        const double n = (&surface_.normal[e].x)[side / 2] * (side & 1 ? h_ : -h_);
+        const double there = phi[next];
+        if (there > 0 && there < phi[c] + n - 0.05 * h_) at.beside |= 1u << side;
+    }
+    s = special_slopes(phi, at);
+    finder_.for_cell(c, phi, length(), e, foot, layer_reach * h_, at.layers);
+    for (int k = 0; k < at.layers.count; ++k) {
+        Speed speed;
+        blend(at.layers.row[k], at.place);
+        if (at.layers.row[k].row >= 0) change(s, at.layers.row[k], speed);
+        most.waves = std::max(most.waves, speed.waves);
+        if (std::fabs(phi[c]) < h_) most.rate = std::max(most.rate, std::fabs(speed.rate));
+    }
+}
+
+} // namespace rille::geometry
