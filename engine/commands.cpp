@@ -7,6 +7,7 @@
 #include "engine/estimate.hpp"
 #include "engine/metrics.hpp"
 #include "engine/output_names.hpp"
+#include "engine/problems.hpp"
 #include "engine/run.hpp"
 #include "engine/run_output.hpp"
 
@@ -21,10 +22,22 @@
 namespace rille::engine {
 namespace {
 
+/// The seed is one more override, so that the resolved case says what was run.
 Case load(const std::string& path, const CommonOptions& options) {
-    Case the_case = load_case(path, options.overrides);
-    if (options.seed) the_case.seed = *options.seed;
-    return the_case;
+    std::vector<std::string> overrides = options.overrides;
+    if (options.seed) overrides.push_back("sampling.seed=" + std::to_string(*options.seed));
+    return load_case(path, overrides);
+}
+
+/// Only what is measured may differ from the run: throws InputError for other overrides.
+void check_measure_overrides(const std::vector<std::string>& overrides) {
+    Problems problems;
+    for (const std::string& text : overrides)
+        if (text.rfind("measure.", 0) != 0 && text.rfind("targets", 0) != 0)
+            problems.add({"--set " + text, 0, 0}, "",
+                         "a finished run can be measured differently, not run differently: "
+                         "measure.* and targets.* are allowed");
+    problems.throw_if_any();
 }
 
 std::string utc_now() {
@@ -60,9 +73,13 @@ std::string last_frame(const std::string& folder) {
     const std::filesystem::path frames = std::filesystem::path(folder) / output_names::frames;
     std::string last;
     std::error_code missing;
-    for (const auto& entry : std::filesystem::directory_iterator(frames, missing))
-        if (entry.path().extension() == ".vtp") last = std::max(last, entry.path().string());
-    if (last.empty()) throw OutputError(frames.string(), "looking for frames", "none found");
+    for (const auto& entry : std::filesystem::directory_iterator(frames, missing)) {
+        const std::string file = entry.path().string();
+        const bool later = file.size() != last.size() ? file.size() > last.size() : file > last;
+        if (entry.path().extension() == ".vtp" && later) last = file;
+    }
+    if (last.empty())
+        throw OutputError(folder, "looking for the frames of a run", "there are none here");
     return last;
 }
 
@@ -78,8 +95,6 @@ int run_command(const std::string& case_path, const std::string& folder, bool fo
     const Case the_case = load(case_path, options);
     OutputFolder out(folder,
                      force ? OutputFolder::Existing::force : OutputFolder::Existing::refuse);
-    for (const std::string& warning : the_case.warnings)
-        if (!options.quiet) std::cerr << "warning: " << warning << '\n';
     const std::string started = utc_now();
     RunOutput output(out, the_case);
     Progress progress(std::cerr, Progress::style_for(STDERR_FILENO, options.quiet));
@@ -95,7 +110,7 @@ int run_command(const std::string& case_path, const std::string& folder, bool fo
     else if (!options.quiet)
         std::cout << closing_text(the_case, result.record, metrics, folder);
     if (result.error) std::rethrow_exception(result.error);
-    return 0;
+    return result.record.status == "interrupted" ? interrupted_status : 0;
 }
 
 int check_command(const std::string& case_path, const CommonOptions& options) {
@@ -115,6 +130,7 @@ int check_command(const std::string& case_path, const CommonOptions& options) {
 
 int measure_command(const std::string& folder, const CommonOptions& options) {
     namespace fs = std::filesystem;
+    check_measure_overrides(options.overrides);
     const Case the_case = load((fs::path(folder) / output_names::resolved_case).string(), options);
     const SurfaceState last = read_vtp(the_case, last_frame(folder));
     const Metrics metrics = measure(the_case, last);

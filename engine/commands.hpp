@@ -9,6 +9,9 @@
 
 namespace rille::engine {
 
+/// What run_command returns when it was stopped before its end.
+constexpr int interrupted_status = 130;
+
 /// What every command understands.
 struct CommonOptions {
     std::vector<std::string> overrides; ///< "key.path=value"

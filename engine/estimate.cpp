@@ -3,6 +3,7 @@
 
 #include "engine/console.hpp"
 #include "engine/run.hpp"
+#include "engine/run_record.hpp"
 #include "geometry/band.hpp"
 
 #include <algorithm>
@@ -13,22 +14,6 @@
 
 namespace rille::engine {
 namespace {
-
-/// Depth [nm] that the recipe is expected to reach: as far as the open field goes.
-double expected_depth(const Case& the_case) {
-    OpenField field(the_case);
-    const double top = field.height();
-    for (const RecipeStep& step : the_case.steps)
-        if (step.end.kind == StepEnd::Kind::time)
-            field.advance(step.end.time_s, step.plasma);
-        else if (step.end.kind != StepEnd::Kind::share_of_step)
-            for (const geometry::Film& film : the_case.films)
-                if (film.name == step.end.film)
-                    field.advance(
-                        std::min(step.no_longer_than_s, field.time_to(film.top, step.plasma)),
-                        step.plasma);
-    return top - field.height();
-}
 
 /// Area of the walls [nm^2, extruded nm] that the expected depth adds.
 double wall_area(const Case& the_case, double depth) {
@@ -46,21 +31,24 @@ Estimate estimate_run(const Case& the_case) {
     using Clock = std::chrono::steady_clock;
     Estimate estimate;
     Simulation simulation(the_case);
-    const auto start = Clock::now();
-    simulation.arrivals();
-    const double seconds = std::chrono::duration<double>(Clock::now() - start).count();
+    const Expectation expected = expect(the_case);
     const double h = the_case.domain.spacing;
-    const double depth = expected_depth(the_case);
+    // One short advance with all that belongs to it: two solves, the move, the new surface.
+    const double top_rate = expected.total_s > 0 ? expected.depth_nm / expected.total_s : 0;
+    const auto start = Clock::now();
+    simulation.step(top_rate > 0 ? 0.1 * h / top_rate : expected.total_s);
+    const double seconds = std::chrono::duration<double>(Clock::now() - start).count();
     const double cell = the_case.domain.extruded() ? h : h * h;
     const std::size_t now = simulation.surface().size();
-    estimate.elements = now + static_cast<std::size_t>(1.3 * wall_area(the_case, depth) / cell);
+    estimate.elements =
+        now + static_cast<std::size_t>(1.3 * wall_area(the_case, expected.depth_nm) / cell);
     const double growth = now == 0 ? 1.0 : static_cast<double>(estimate.elements) / now;
     estimate.voxels = static_cast<std::size_t>(growth * simulation.front().band().size());
-    estimate.memory_mb = growth * simulation.front().memory_bytes() / 1e6;
-    estimate.refreshes = static_cast<int>(std::ceil(2 * depth / h)) + 1;
-    estimate.process_s = expected_duration(the_case);
-    // Two solves a refresh (Heun); the surface grows from its present to its final size.
-    estimate.wall_seconds = 2 * estimate.refreshes * seconds * 0.5 * (1 + growth);
+    estimate.memory_mb = growth * peak_memory_bytes() / 1e6;
+    estimate.refreshes = static_cast<int>(std::ceil(2 * expected.depth_nm / h)) + 1;
+    estimate.process_s = expected.total_s;
+    // The surface grows from its present to its final size while the run goes on.
+    estimate.wall_seconds = estimate.refreshes * seconds * 0.5 * (1 + growth);
     return estimate;
 }
 
@@ -72,13 +60,16 @@ std::string estimate_text(const Case& the_case, const Estimate& e) {
          << " voxels and " << e.elements << " surface elements at the end\n"
          << "rays: " << the_case.rays_per_element << " per element and refresh, "
          << the_case.ions_per_species << " reflected ions per species\n"
-         << "memory: about " << std::ceil(e.memory_mb) << " MB for the front\n"
+         << "memory: about " << std::ceil(e.memory_mb) << " MB at most\n"
          << "time: about " << duration_text(e.process_s) << " of process, " << e.refreshes
          << " refreshes, about " << duration_text(e.wall_seconds) << " on this machine\n";
     return text.str();
 }
 
 nlohmann::json estimate_json(const Case& the_case, const Estimate& e) {
+    std::vector<std::string> warnings = the_case.warnings;
+    for (const std::string& warning : charging_warnings(the_case))
+        warnings.push_back(warning);
     return {{"title", the_case.title},
             {"spacing_nm", the_case.domain.spacing},
             {"voxels", e.voxels},

@@ -15,10 +15,10 @@ struct Estimate {
     double memory_mb = 0;
     int refreshes = 0;       ///< of the arrivals, two solves each
     double process_s = 0;    ///< simulated time
-    double wall_seconds = 0; ///< measured on one refresh of the initial front, scaled
+    double wall_seconds = 0; ///< one refresh of the initial front, scaled
 };
 
-/// Builds the initial front, times one refresh of its arrivals and scales to the expected end.
+/// Builds the initial front, does one short advance and scales its cost to the expected end.
 Estimate estimate_run(const Case&);
 std::string estimate_text(const Case&, const Estimate&);
 nlohmann::json estimate_json(const Case&, const Estimate&);

@@ -28,9 +28,12 @@ void add_common(CLI::App& command, engine::CommonOptions& options) {
     command.add_option("--set", options.overrides, "Replace a value of the case: key.path=value");
     command.add_option("--threads", options.threads, "Threads to use (default: all cores)")
         ->check(CLI::Range(1, 4096));
+    command.add_flag("--json", options.json, "Print the result as JSON");
+}
+
+void add_run_options(CLI::App& command, engine::CommonOptions& options) {
     command.add_option("--seed", options.seed, "Seed of everything random");
     command.add_flag("--quiet", options.quiet, "Print nothing but errors");
-    command.add_flag("--json", options.json, "Print the result as JSON");
 }
 
 int dispatch(int argc, char** argv) {
@@ -56,6 +59,7 @@ int dispatch(int argc, char** argv) {
     measure->add_option("folder", folder, "Folder of a run")->required();
     for (CLI::App* command : {run, check, measure})
         add_common(*command, options);
+    add_run_options(*run, options);
     try {
         app.parse(argc, argv);
     } catch (const CLI::ParseError& error) {
@@ -64,13 +68,13 @@ int dispatch(int argc, char** argv) {
     std::optional<tbb::global_control> limit;
     if (options.threads > 0)
         limit.emplace(tbb::global_control::max_allowed_parallelism, options.threads);
-    std::signal(SIGINT, on_signal);
-    std::signal(SIGTERM, on_signal);
     if (*check) return engine::check_command(path, options);
     if (*measure) return engine::measure_command(folder, options);
     if (*schema) return engine::schema_command();
+    std::signal(SIGINT, on_signal);
+    std::signal(SIGTERM, on_signal);
     const int status = engine::run_command(path, folder, force, options, stop);
-    return signal_number ? 128 + signal_number : status;
+    return status == engine::interrupted_status ? 128 + signal_number : status;
 }
 
 } // namespace

@@ -2,6 +2,7 @@
 #include "engine/run.hpp"
 
 #include "engine/metrics.hpp"
+#include "engine/number_text.hpp"
 #include "geometry/check.hpp"
 
 #include <algorithm>
@@ -47,6 +48,7 @@ HistoryRow history_row(const Case& the_case, Simulation& simulation, const std::
     row.redistance_shift = simulation.health().largest_redistance_shift;
     row.rays = simulation.health().rays;
     row.lost_rays = simulation.health().lost_rays;
+    row.largest_move = simulation.last_move_cells();
     measure_row(the_case, simulation.surface(), row);
     return row;
 }
@@ -65,12 +67,13 @@ void note_health(const Case& the_case, const Simulation& simulation, RunRecord& 
                       {"fluxes", t.fluxes},
                       {"advance", t.advance},
                       {"carry", t.carry}};
-    for (const auto& part : simulation.isolated_parts())
-        record.warnings.push_back((part.kind == geometry::IsolatedPart::Kind::closed_void
+    for (const IsolatedEvent& event : simulation.isolated_parts())
+        record.warnings.push_back((event.part.kind == geometry::IsolatedPart::Kind::closed_void
                                        ? std::string("a void has closed off")
                                        : std::string("a piece of solid has come off")) +
-                                  " near x = " + std::to_string(part.centre.x) +
-                                  " nm, z = " + std::to_string(part.centre.z) + " nm");
+                                  " near x = " + rounded(event.part.centre.x) +
+                                  " nm, z = " + rounded(event.part.centre.z) +
+                                  " nm, first seen at " + rounded(event.time_s) + " s");
     for (const std::string& warning : charging_warnings(the_case))
         record.warnings.push_back(warning);
 }
@@ -81,10 +84,11 @@ bool is_insulator(const Case& the_case, int material) {
 
 } // namespace
 
-double expected_duration(const Case& the_case) {
+Expectation expect(const Case& the_case) {
     OpenField field(the_case);
+    const double top = field.height();
+    Expectation expected;
     std::map<std::string, double> duration;
-    double total = 0;
     for (const RecipeStep& step : the_case.steps) {
         double time = step.end.time_s;
         if (step.end.kind == StepEnd::Kind::share_of_step)
@@ -97,24 +101,36 @@ double expected_duration(const Case& the_case) {
         }
         field.advance(time, step.plasma);
         duration[step.name] = time;
-        total += time;
+        expected.step_s.push_back(time);
+        expected.total_s += time;
     }
-    return total;
+    expected.depth_nm = top - field.height();
+    return expected;
+}
+
+double Expectation::share(std::size_t index, double of_step) const {
+    if (!(total_s > 0)) return (index + of_step) / step_s.size();
+    double done = of_step * step_s[index];
+    for (std::size_t step = 0; step < index; ++step)
+        done += step_s[step];
+    return std::min(1.0, done / total_s);
 }
 
 std::vector<std::string> charging_warnings(const Case& the_case) {
     std::vector<std::string> warnings;
     double width = std::numeric_limits<double>::infinity();
     for (const auto& opening : the_case.mask.openings)
-        width = std::min(width, opening.width_x);
-    double depth = 0;
+        width = std::min(width, opening.shape == geometry::Opening::Shape::trench
+                                    ? opening.width_x
+                                    : std::min(opening.width_x, opening.width_y));
+    const double depth = expect(the_case).depth_nm;
     bool insulating_above_stop = false, conductor_to_insulator = false;
     for (std::size_t f = the_case.substrate_first; f < the_case.films.size(); ++f) {
         const geometry::Film& film = the_case.films[f];
         const bool insulator = is_insulator(the_case, film.material);
+        if (-film.top >= depth) break; // not reached
         if (insulator) insulating_above_stop = true;
-        if (std::isfinite(film.bottom)) depth = -film.bottom;
-        if (f > static_cast<std::size_t>(the_case.substrate_first) && insulator &&
+        if (f > std::size_t(the_case.substrate_first) && insulator &&
             !is_insulator(the_case, the_case.films[f - 1].material))
             conductor_to_insulator = true;
     }
@@ -136,8 +152,9 @@ namespace {
 /// Steps to the end of the recipe, telling the observer; returns early when `stop` is set.
 void follow_recipe(const Case& the_case, Simulation& simulation, RunObserver& observer,
                    const std::atomic<bool>& stop, std::vector<HistoryRow>& history) {
-    const double interval = the_case.frame_interval_s > 0 ? the_case.frame_interval_s
-                                                          : expected_duration(the_case) / 10;
+    const Expectation expected = expect(the_case);
+    const double interval =
+        the_case.frame_interval_s > 0 ? the_case.frame_interval_s : expected.total_s / 10;
     observer.framed(snapshot(the_case, simulation));
     double next_frame = interval;
     while (!simulation.finished() && !stop) {
@@ -147,7 +164,7 @@ void follow_recipe(const Case& the_case, Simulation& simulation, RunObserver& ob
         simulation.step(next_frame);
         history.push_back(history_row(the_case, simulation, the_case.steps[index].name, start_s));
         const double of_step = simulation.step_index() > index ? 1.0 : simulation.step_progress();
-        observer.progressed(simulation, history.back(), (index + of_step) / the_case.steps.size());
+        observer.progressed(simulation, history.back(), expected.share(index, of_step));
         if (simulation.time_s() >= next_frame * (1 - 1e-12)) {
             if (!simulation.finished()) observer.framed(snapshot(the_case, simulation));
             next_frame += interval;

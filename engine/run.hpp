@@ -26,9 +26,16 @@ public:
 /// status "failed" and the error.
 RunResult run_case(const Case&, RunObserver&, const std::atomic<bool>& stop);
 
-/// Estimated length [s] of the process: times as stated, and for steps that end at a film the
-/// open field's time, at most the step's limit.
-double expected_duration(const Case&);
+/// What the recipe is expected to do, from the open field: times as stated, and for steps that end
+/// at a film the open field's time, at most the step's limit.
+struct Expectation {
+    std::vector<double> step_s; ///< length of each recipe step
+    double total_s = 0;
+    double depth_nm = 0; ///< of the open field at the end
+    /// Share of the whole that is done when `of_step` of step `index` is.
+    double share(std::size_t index, double of_step) const;
+};
+Expectation expect(const Case&);
 
 /// Charging is not modelled: says so where it matters, an insulator above aspect ratio 10 or a
 /// conductor etched down to an insulator (common practice, no source).

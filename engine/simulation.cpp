@@ -62,6 +62,20 @@ geometry::GrownFilms initial_films(const Case& c, std::size_t elements) {
     return films;
 }
 
+/// Highest point [nm] of the floor below an opening: of every element that faces up within the
+/// inner 80 % of the opening as drawn and lies below the mask.
+double highest_floor(const Surface& surface, const geometry::FeatureSite& site) {
+    double z = -std::numeric_limits<double>::infinity();
+    for (std::size_t e = 0; e < surface.size(); ++e) {
+        const Vec3& c = surface.centre[e];
+        const double x = (c.x - site.centre_x) / (0.4 * site.width_x);
+        const double y = site.round ? (c.y - site.centre_y) / (0.4 * site.width_y) : 0.0;
+        const bool inside = site.round ? x * x + y * y < 1 : std::fabs(x) < 1;
+        if (inside && surface.chain[e] == 0 && surface.normal[e].z > 0.3) z = std::max(z, c.z);
+    }
+    return z;
+}
+
 double highest(const Surface& surface) {
     double z = -std::numeric_limits<double>::infinity();
     for (const Vec3& v : surface.vertices)
@@ -130,8 +144,7 @@ fluxes::SurfaceStep Simulation::solve(const Surface& surface, const geometry::Gr
                                                        highest(surface) + 2 * case_.domain.spacing);
     }
     const Stopwatch watch(timings_.fluxes);
-    const std::string& plasma =
-        finished() ? case_.steps.back().plasma : case_.steps[step_index_].plasma;
+    const std::string& plasma = case_.steps[plasma_step_].plasma;
     fluxes::Sampling sampling;
     sampling.rays_per_element = case_.rays_per_element;
     sampling.ions_per_species = case_.ions_per_species;
@@ -313,6 +326,7 @@ void Simulation::accept(Trial&& trial, const fluxes::SurfaceStep& step) {
     open_field_.advance(dt, recipe().plasma);
     time_s_ += dt;
     last_dt_s_ = dt;
+    last_move_cells_ = trial.report.largest_move;
     health_.sub_steps += trial.report.sub_steps;
     health_.largest_redistance_shift =
         std::max(health_.largest_redistance_shift, trial.report.redistance_shift);
@@ -320,9 +334,17 @@ void Simulation::accept(Trial&& trial, const fluxes::SurfaceStep& step) {
 }
 
 void Simulation::find_isolated() {
-    const bool any = std::any_of(surface_.chain.begin(), surface_.chain.end(),
-                                 [](int chain) { return chain != 0; });
-    if (any && isolated_.empty()) isolated_ = geometry::find_isolated_parts(front_, surface_);
+    const auto apart = [](int chain) { return chain != 0; };
+    if (std::none_of(surface_.chain.begin(), surface_.chain.end(), apart)) return;
+    for (const auto& part : geometry::find_isolated_parts(front_, surface_)) {
+        const double size = std::cbrt(part.volume) + 4 * case_.domain.spacing;
+        const bool known =
+            std::any_of(isolated_.begin(), isolated_.end(), [&](const IsolatedEvent& event) {
+                return event.part.kind == part.kind &&
+                       (event.part.centre - part.centre).length() < size;
+            });
+        if (!known) isolated_.push_back({part, time_s_});
+    }
 }
 
 } // namespace rille::engine

@@ -29,6 +29,12 @@ struct Health {
     int refreshes = 0, sub_steps = 0;
 };
 
+/// A void that closed off or a piece that came off, and when it was first seen.
+struct IsolatedEvent {
+    geometry::IsolatedPart part;
+    double time_s = 0;
+};
+
 /// A run in progress: the front, what rides on it, and where the recipe stands. One call of step()
 /// is one refresh of the arrivals.
 class Simulation {
@@ -43,6 +49,7 @@ public:
 
     double time_s() const { return time_s_; }
     double last_dt_s() const { return last_dt_s_; }
+    double last_move_cells() const { return last_move_cells_; }
     std::size_t step_index() const { return step_index_; }
     const std::vector<StepOutcome>& outcomes() const { return outcomes_; }
     /// False once a step ran into its limit before it reached what it was to reach.
@@ -54,12 +61,13 @@ public:
     std::vector<std::vector<double>> displacement_errors() const;
     /// Outermost material of each element.
     std::vector<int> materials() const;
-    /// Arrivals and rates on the present surface under the plasma of the present (or last) step.
+    /// Arrivals and rates on the present surface under the plasma of the present (or last) step;
+    /// after a step has ended still under its own plasma until the next one begins to etch.
     const fluxes::SurfaceStep& arrivals();
     const OpenField& open_field() const { return open_field_; }
     const Health& health() const { return health_; }
     const Timings& timings() const { return timings_; }
-    const std::vector<geometry::IsolatedPart>& isolated_parts() const { return isolated_; }
+    const std::vector<IsolatedEvent>& isolated_parts() const { return isolated_; }
     /// Share of the present recipe step that is done, in [0, 1], as far as can be told.
     double step_progress() const;
 
@@ -96,11 +104,12 @@ private:
     std::vector<geometry::SurfaceField> error_fields_; ///< one per batch
     fluxes::SurfaceStep present_;
     bool present_valid_ = false;
+    std::size_t plasma_step_ = 0; ///< recipe step whose plasma shapes the arrivals
     OpenField open_field_;
     std::vector<StepOutcome> outcomes_;
     std::map<std::string, double> duration_s_; ///< of finished steps
-    std::vector<geometry::IsolatedPart> isolated_;
-    double time_s_ = 0, last_dt_s_ = 0, step_start_s_ = 0;
+    std::vector<IsolatedEvent> isolated_;
+    double time_s_ = 0, last_dt_s_ = 0, last_move_cells_ = 0, step_start_s_ = 0;
     double start_distance_ = 0; ///< distance to the goal when the step began [nm]
     std::size_t step_index_ = 0;
     bool all_reached_ = true;

@@ -2,6 +2,7 @@
 // How a run follows its recipe: when a step begins, how long it may go on, how it ends.
 #include "engine/simulation.hpp"
 
+#include "engine/number_text.hpp"
 #include "geometry/check.hpp"
 
 #include <algorithm>
@@ -53,6 +54,8 @@ double Simulation::step_end_time() const {
 
 void Simulation::step(double no_later_than_s) {
     RILLE_CHECK(!finished(), "the recipe is done");
+    if (recipe().plasma != case_.steps[plasma_step_].plasma) present_valid_ = false;
+    plasma_step_ = step_index_;
     const StepEnd end = recipe().end;
     const double last = step_end_time();
     double open_field_time = forever;
@@ -60,7 +63,7 @@ void Simulation::step(double no_later_than_s) {
         open_field_time = time_s_ + open_field_.time_to(film_top(case_, end.film), recipe().plasma);
     if (by_profile(end) && distance_to_goal(surface_) <= 0) return end_step(true);
     const double until = std::min({last, open_field_time, no_later_than_s});
-    const double rounding = 1e-12 * std::max(1.0, until);
+    const double rounding = 1e-12 * until;
     if (until - time_s_ > rounding) {
         Trial trial = heun(until - time_s_);
         const bool met = by_profile(end) && distance_to_goal(trial.surface) <= 0;
@@ -77,20 +80,20 @@ void Simulation::step(double no_later_than_s) {
 void Simulation::end_step(bool reached) {
     const RecipeStep& step = recipe();
     const bool timed = !by_profile(step.end) && !by_open_field(step.end);
-    const std::string goal =
-        timed ? "time"
-              : (step.end.kind == StepEnd::Kind::cleared ? "cleared down to " : "reached ") +
-                    step.end.film + " at " + step.end.at;
-    if (!reached && step.must_end)
-        throw NumericsError("step " + step.name + ": " + step.end.film + " was not " + goal +
-                            " within its limit of " + std::to_string(step.no_longer_than_s) + " s");
+    const bool clearing = step.end.kind == StepEnd::Kind::cleared;
+    const std::string place = step.end.at == "open field" ? step.end.at : step.end.at + " centre";
+    const std::string goal = step.end.film + (clearing ? " over " + step.end.at : " at " + place);
+    const std::string how = timed ? "time"
+                            : reached
+                                ? (clearing ? "cleared down to " : "reached ") + goal
+                                : (clearing ? "did not clear down to " : "did not reach ") + goal +
+                                      " within " + shortest(step.no_longer_than_s) + " s";
     all_reached_ = all_reached_ && reached;
-    outcomes_.push_back(
-        {step.name, step_start_s_, time_s_, reached ? goal : "time limit; not " + goal});
+    outcomes_.push_back({step.name, step_start_s_, time_s_, how});
     duration_s_[step.name] = time_s_ - step_start_s_;
     ++step_index_;
-    present_valid_ = false;
     begin_step();
+    if (!reached && step.must_end) throw NumericsError("step " + step.name + ": " + how);
 }
 
 double Simulation::step_progress() const {

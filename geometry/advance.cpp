@@ -200,8 +200,8 @@ AdvanceReport advance(Front& front, const Surface& surface, const NormalRates& r
     const double h = front.domain().spacing;
     AdvanceReport report = Advance(front, surface, rates, stack, films, growth_film, limits).run();
     // Contouring in three dimensions needs the diagonal neighbours of the front as well.
-    if (!front.domain().extruded() ||
-        edge_distance(front.band()) < (band_half_width - edge_margin) * h)
+    if (edge_distance(front.band()) < (band_half_width - edge_margin) * h ||
+        contour_lacks_cells(front.band()))
         front.rebuild();
     if (lowest_contour(front.band()) < z_floor + 2 * h)
         throw NumericsError("the front comes within two cells of the lower end of the domain");

@@ -17,9 +17,11 @@ void Advance::refresh() {
     const ClosestElements closest =
         closest_elements(band_, surface_, first ? std::vector<double>() : report_.moved);
     if (first) report_.redistance_shift = redistance(band_, surface_, closest);
-    // Nothing of the front is left near such cells: they drop out of the band.
+    // Cells that still say near where nothing of the front is left drop out of the band. (Cells
+    // farther out may have no element in reach, beyond a sharp corner: they keep their value.)
     for (std::size_t c = 0; c < band_.size(); ++c)
-        if (closest.element[c] < 0) band_.phi[c] = std::copysign(4 * h_, band_.phi[c]);
+        if (closest.element[c] < 0 && std::fabs(band_.phi[c]) < 1.5 * h_)
+            band_.phi[c] = std::copysign(4 * h_, band_.phi[c]);
     classify_elements();
     classify_cells(closest);
     slope_.assign(band_.size(), 0.0);

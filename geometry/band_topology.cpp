@@ -117,7 +117,8 @@ double eikonal(const Band& band, std::size_t c, double unknown) {
         if (root < 0) break;
         u = (linear + std::sqrt(root)) / square;
     }
-    return std::max(u, n > 0 ? terms[0].least : u);
+    // Never 0: a new cell keeps its side.
+    return std::max({u, n > 0 ? terms[0].least : u, 1e-3 * h});
 }
 
 /// Steps (0 to 2, else 3) from each cell to the nearest one whose neighbour has the other sign.
@@ -336,6 +337,16 @@ void retopologise(Band& band, int layers) {
     band.cells.resize(kept);
     band.phi.resize(kept);
     connect(band);
+}
+
+bool contour_lacks_cells(const Band& band) {
+    if (band.domain.extruded()) return false;
+    const std::vector<char> steps = steps_to_contour(band);
+    for (std::size_t c = 0; c < band.size(); ++c)
+        if (steps[c] <= 1)
+            for (const int n : band.neighbour[c])
+                if (n < 0) return true;
+    return false;
 }
 
 double edge_distance(const Band& band) {

@@ -47,6 +47,10 @@ void connect(Band& band);
 /// new values come from the eikonal equation with the old ones as boundary values.
 void retopologise(Band& band, int layers);
 
+/// full: whether a cell that contouring needs (within two steps of the contour, diagonals included)
+/// is missing from the band. Never in extruded.
+bool contour_lacks_cells(const Band& band);
+
 /// Smallest |phi| [nm] among cells with a missing neighbour: how near the contour came to the edge.
 double edge_distance(const Band& band);
 

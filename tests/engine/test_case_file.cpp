@@ -77,7 +77,7 @@ TEST_CASE("the trench example is read into inside units") {
     CHECK(c.cd_places.at("middle").z == -120);
     CHECK(c.cd_places.at("bottom").z == -230);
     REQUIRE(c.targets.size() == 3);
-    CHECK(c.targets[0].at_least == 55);
+    CHECK(c.targets[0].at_least == 50);
     CHECK(c.targets[0].at_most == 65);
     CHECK_FALSE(c.targets[1].at_least.has_value());
     CHECK(c.targets[2].at_least == 40);
