@@ -1,4 +1,5 @@
 // SPDX-License-Identifier: Apache-2.0
+#include "geometry/extract_surface.hpp"
 #include "tests/geometry/etch_loop.hpp"
 
 #include <catch2/catch.hpp>
@@ -51,7 +52,8 @@ double cube_error(double offset) {
     const double exact =
         t < 0 ? std::pow(s + 2 * t, 3)
               : s * s * s + 6 * s * s * t + 3 * pi * s * t * t + 4 * pi * t * t * t / 3;
-    return volume(extract_surface(front)) / exact - 1;
+    // Read with every edge rebuilt, as drawn: the contour of a run leaves doubtful edges blunt.
+    return volume(extract_surface(front.band(), Edges::drawn)) / exact - 1;
 }
 
 } // namespace
