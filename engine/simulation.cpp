@@ -153,6 +153,7 @@ fluxes::SurfaceStep Simulation::solve(const Surface& surface, const geometry::Gr
     auto solved = fluxes::solve_surface(
         case_.domain, surface, *caster, materials_in_reach(surface, films), case_.mechanism,
         case_.reflection, sources_of(case_, case_.plasmas.at(plasma)), sampling, previous);
+    neck_limit_s_ = neck_limit(surface, solved, *caster);
     health_.rays += caster->traced();
     health_.lost_rays += caster->lost();
     health_.largest_sticking_residual =
@@ -163,6 +164,19 @@ fluxes::SurfaceStep Simulation::solve(const Surface& surface, const geometry::Gr
                             std::to_string(health_.rays) +
                             " rays ended neither on the surface nor in the open");
     return solved;
+}
+
+double Simulation::neck_limit(const Surface& surface, const fluxes::SurfaceStep& solved,
+                              const geometry::RayCaster& caster) const {
+    double limit = std::numeric_limits<double>::infinity();
+    for (std::size_t e = 0; e < surface.size(); ++e) {
+        const double growth = -solved.response[e].rate;
+        if (growth <= 0) continue;
+        const auto hit = caster.trace(surface.centre[e], surface.normal[e], static_cast<int>(e));
+        if (hit.kind != geometry::Hit::Kind::surface) continue;
+        limit = std::min(limit, std::max(hit.distance, case_.domain.spacing) / (8 * growth));
+    }
+    return limit;
 }
 
 const fluxes::SurfaceStep& Simulation::arrivals() {
@@ -228,7 +242,7 @@ void Simulation::average_rates(fluxes::SurfaceStep& now, const fluxes::SurfaceSt
 
 Simulation::Trial Simulation::heun(double time_limit) {
     const fluxes::SurfaceStep& now = arrivals();
-    Trial predicted = try_advance(now, time_limit, case_.refresh_move);
+    Trial predicted = try_advance(now, std::min(time_limit, neck_limit_s_), case_.refresh_move);
     geometry::GrownFilms films = predicted.films;
     {
         const Stopwatch watch(timings_.carry);

@@ -6,6 +6,7 @@
 #include "engine/run_record.hpp"
 #include "fluxes/surface_step.hpp"
 #include "geometry/front.hpp"
+#include "geometry/ray_caster.hpp"
 #include "geometry/topology.hpp"
 
 #include <cstdint>
@@ -86,6 +87,10 @@ private:
                               const fluxes::SurfaceStep* previous);
     Trial try_advance(const fluxes::SurfaceStep&, double time, double max_move);
     Trial heun(double time_limit);
+    /// Longest step [s] that leaves narrowing necks resolved: an eighth of the time in which the
+    /// growth on one side alone would close the gap (gaps below one cell count as one cell).
+    double neck_limit(const geometry::Surface&, const fluxes::SurfaceStep&,
+                      const geometry::RayCaster&) const;
     void average_rates(fluxes::SurfaceStep& now, const fluxes::SurfaceStep& later,
                        const Trial& predicted) const;
     void accept(Trial&&, const fluxes::SurfaceStep&);
@@ -104,6 +109,7 @@ private:
     std::vector<geometry::SurfaceField> error_fields_; ///< one per batch
     fluxes::SurfaceStep present_;
     bool present_valid_ = false;
+    double neck_limit_s_ = 0;     ///< of the last surface that was solved
     std::size_t plasma_step_ = 0; ///< recipe step whose plasma shapes the arrivals
     OpenField open_field_;
     std::vector<StepOutcome> outcomes_;

@@ -187,3 +187,33 @@ TEST_CASE("a mirror-symmetric case stays symmetric", "[validation][symmetry]") {
     CAPTURE(spread, n);
     CHECK(most < 1e-5);
 }
+
+// Oracle: a sticky film grows fastest at the rim of a trench and closes it there, not before each
+// side has grown by w / 2 at the open rate; the void below is reported with its time.
+// Source: necking and clogging, common practice, no source; the bound is derived here.
+// Tolerance: one refresh.
+TEST_CASE("a film that grows at the rim pinches the trench off", "[validation][trends]") {
+    TrenchCase t(80, 2, 60, 100);
+    t.add_opening("trench", 20);
+    const int neutral = t.add_neutral("P", 24);
+    fluxes::Deposition growth;
+    growth.neutral = neutral;
+    growth.sticking = 1;
+    growth.film_density = 24; // 1 nm/s in the open
+    growth.film_material = 3;
+    for (const int material : {0, 1, 3}) {
+        t.chemistry(material).density = 24;
+        t.chemistry(material).processes = {growth};
+    }
+    t.add_step("main", 8);
+    t.add_step("more", 72);
+    const auto outcome = run_quietly(t.c);
+    REQUIRE(outcome.record.failure == "");
+    double closed_s = 0;
+    for (const auto& row : outcome.history)
+        if (!row.features[0].depth_centre && closed_s == 0) closed_s = row.time_s;
+    CAPTURE(closed_s);
+    CHECK(closed_s > 10);
+    REQUIRE_FALSE(outcome.record.warnings.empty());
+    CHECK(outcome.record.warnings.front().find("a void has closed off") == 0);
+}
