@@ -17,7 +17,7 @@ status=$?
 [ $status = 4 ] || { echo "FAILED: status $status, wanted 4"; exit 1; }
 grep -q 'step main: did not reach stop at trench centre within 2 s' "$work/errors" || { cat "$work/errors"; exit 1; }
 grep -q '"status": "failed"' "$work/must/run.json" || { echo "FAILED: run.json"; exit 1; }
-[ -s "$work/must/profile.svg" ] && [ -s "$work/must/metrics.json" ] || { echo "FAILED: output"; exit 1; }
+[ -s "$work/must/profile.svg" ] && [ -s "$work/must/metrics.json" ] && ls "$work"/must/frames/*.vtp >/dev/null || { echo "FAILED: output"; exit 1; }
 
 "$rille" run "$work/may.yaml" -o "$work/may" --quiet --seed 7 || { echo "FAILED: status $?"; exit 1; }
 grep -q '"status": "not cleared"' "$work/may/run.json" || { echo "FAILED: not cleared"; exit 1; }
