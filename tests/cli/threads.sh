@@ -24,3 +24,11 @@ if cmp -s "$work/one/profile.csv" "$work/seed/profile.csv"; then
     echo "another seed gave the same bits: the comparison proves nothing"
     exit 1
 fi
+
+# The same in three dimensions.
+for threads in 1 2; do
+    "$rille" run "$root/examples/contact-via/case.yaml" --set 'spacing=8 nm' \
+        --set 'recipe.steps.main.no_longer_than=2 s' --set 'sampling.ions_per_species=8192' \
+        -o "$work/via$threads" --quiet --threads $threads
+done
+cmp "$work/via1/profile.csv" "$work/via2/profile.csv"

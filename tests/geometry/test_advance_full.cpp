@@ -52,7 +52,8 @@ double cube_error(double offset) {
     const double exact =
         t < 0 ? std::pow(s + 2 * t, 3)
               : s * s * s + 6 * s * s * t + 3 * pi * s * t * t + 4 * pi * t * t * t / 3;
-    // Read with every edge rebuilt, as drawn: the contour of a run leaves doubtful edges blunt.
+    // Read with every edge rebuilt, as drawn: the contour of a run leaves doubtful
+    // edges blunt and reads 0.23 % (inwards) and 3.2 % (outwards) short.
     return volume(extract_surface(front.band(), Edges::drawn)) / exact - 1;
 }
 
