@@ -1,7 +1,7 @@
 // SPDX-License-Identifier: Apache-2.0
 #pragma once
 
-#include "fluxes/ions.hpp"
+#include "engine/plasma.hpp"
 #include "fluxes/mechanism.hpp"
 #include "geometry/domain.hpp"
 #include "geometry/initial_shape.hpp"
@@ -13,30 +13,6 @@
 #include <vector>
 
 namespace rille::engine {
-
-/// Everything that a case file says, checked and in inside units (nm, s, eV, K, nm^-2 s^-1).
-struct PlasmaNeutral {
-    std::string name;
-    double flux = 0; ///< [nm^-2 s^-1]
-    double temperature_k = 300;
-};
-struct PlasmaIon {
-    std::string name; ///< as in configs/ions.yaml, "Cl2+"
-    double mass_amu = 0;
-    double share = 0; ///< of the ion flux, sums to 1 over the list
-};
-struct Plasma {
-    std::string name;
-    double electron_temperature_ev = 3;
-    double ion_flux = 0; ///< all ions [nm^-2 s^-1]
-    std::vector<PlasmaIon> ions;
-    double ion_transverse_temperature_ev = 0.1;
-    std::vector<PlasmaNeutral> neutrals;
-    double mean_sheath_voltage = 0; ///< [V]; used where no table is given
-    /// Imported energy-angle tables, one per ion name; "" = for every ion.
-    std::map<std::string, fluxes::IonDistribution> ion_energies;
-    std::vector<std::string> unused; ///< set points that the model does not use, as written
-};
 
 /// A height named in the file: "10 nm below gate top", "middle of gate".
 struct Place {
@@ -68,6 +44,7 @@ struct Target {
     std::string text; ///< as written
 };
 
+/// Everything that a case file says, checked and in inside units (nm, s, eV, K, nm^-2 s^-1).
 struct Case {
     std::string title;
     std::string file; ///< path of the case file

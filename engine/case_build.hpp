@@ -26,6 +26,8 @@ void build_domain(const Entry& root, Case&, Problems&);
 void build_stack(const Entry& root, Case&, Problems&);
 void build_mask(const Entry& root, Case&, Problems&);
 void build_plasmas(const Entry& root, Case&, Problems&);
+/// Part of build_plasmas: rf_bias, pulse and ion_energies of one plasma.
+void build_bias(const Entry& plasma_entry, Case&, Plasma&, Problems&);
 void build_recipe(const Entry& root, Case&, Problems&);
 /// Heights of the CD; where the case names none, three in the first film, which are also written
 /// into `root`.
@@ -33,6 +35,9 @@ void build_measure(Entry& root, Case&, Problems&);
 void build_targets(const Entry& root, Case&, Problems&);
 /// The mechanism for the materials, ions and neutrals of the case; masses of the ions.
 void build_chemistry(const Entry& root, const std::string& folder, Case&, Problems&);
+/// What reaches the wafer, once species have masses: fluxes of neutrals that were given by density,
+/// and the ions through the sheath. A sheath outside what can be computed is a problem.
+void build_arrivals(const Entry& root, Case&, Problems&);
 
 /// Film of that name with a bounded thickness or not; -1 if there is none.
 int film_index(const Case&, const std::string& name);

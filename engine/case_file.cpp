@@ -3,6 +3,7 @@
 
 #include "engine/case_build.hpp"
 #include "engine/case_schema.hpp"
+#include "engine/state_table.hpp"
 #include "engine/words.hpp"
 #include "fluxes/exchange.hpp"
 
@@ -37,6 +38,7 @@ Case build(YamlNode& node, const std::string& name, const std::string& folder,
     apply_overrides(node, overrides, problems);
     copy_plasmas(node, problems);
     absolute_files(node, folder);
+    apply_state_tables(node, problems);
     if (node.at.file.empty()) node.at.file = name;
     Entry root = check(node, case_rules(), problems);
     Case result;
@@ -51,6 +53,7 @@ Case build(YamlNode& node, const std::string& name, const std::string& folder,
         build_targets(root, result, problems);
         build_sampling(root, result, problems);
         build_chemistry(root, folder, result, problems);
+        build_arrivals(root, result, problems);
     }
     problems.throw_if_any();
     result.resolved_yaml = to_yaml(root);

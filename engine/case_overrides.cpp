@@ -195,11 +195,17 @@ void absolute_files(YamlNode& root, const std::string& folder) {
     YamlNode* plasmas = root.find("plasmas");
     if (!plasmas) return;
     for (YamlNode::Member& plasma : plasmas->members) {
+        for (const auto& [group, key] : {std::pair<const char*, const char*>{"rf_bias", "waveform"},
+                                         {"sheath", "cross_sections"},
+                                         {"state", "table"}})
+            if (YamlNode* node = plasma.value.find(group)) make_absolute(node->find(key), folder);
         YamlNode* energies = plasma.value.find("ion_energies");
         if (!energies) continue;
-        make_absolute(energies->find("file"), folder);
-        for (YamlNode::Member& ion : energies->members)
-            make_absolute(ion.value.find("file"), folder);
+        for (const char* key : {"file", "retarding_curve"}) {
+            make_absolute(energies->find(key), folder);
+            for (YamlNode::Member& ion : energies->members)
+                make_absolute(ion.value.find(key), folder);
+        }
     }
 }
 

@@ -1,14 +1,12 @@
 // SPDX-License-Identifier: Apache-2.0
 #include "engine/case_build.hpp"
 
-#include "engine/ion_table_file.hpp"
 #include "engine/words.hpp"
 
 #include <fmt/format.h>
 
 #include <algorithm>
 #include <cmath>
-#include <filesystem>
 
 namespace rille::engine {
 
@@ -33,75 +31,129 @@ void build_ions(const Entry& entry, Plasma& plasma, Problems& problems) {
             ion.share /= sum;
 }
 
-void check_table(const IonTable& table, const std::string& ion, const Entry& file,
-                 Problems& problems) {
-    const auto species = table.header.find("species");
-    const bool named = species != table.header.end() && !species->second.empty();
-    if (named && !ion.empty() && species->second != ion)
-        problems.add(file.at, file.path,
-                     fmt::format("the table is of {}, not of {}", species->second, ion));
-}
-
-/// One table; `ion` is empty if it holds for all ions.
-void add_table(const Entry& entry, const Entry& parent, const std::string& ion, Case& result,
-               Plasma& plasma, Problems& problems) {
-    const Entry& file = entry["file"];
-    if (!file.is_good) return;
-    const std::string shown = std::filesystem::path(file.text).filename().string();
-    if (!std::filesystem::is_regular_file(file.text)) {
-        problems.add(file.at, file.path, fmt::format("no such file: {}", file.text));
-        return;
-    }
-    const std::optional<IonTable> table = read_ion_table(file.text, shown, problems);
-    if (!table) return;
-    check_table(*table, ion, file, problems);
-    const Entry& own = entry["transverse_temperature"];
-    const double transverse =
-        own.is_good ? own.number : parent["ion_transverse_temperature"].number;
-    if (own.is_good && !table->angle_edges_deg.empty())
-        problems.add(own.at, own.path, "the table holds angles; leave this out");
-    for (const std::string& warning : table->warnings)
-        result.warnings.push_back(warning);
-    plasma.ion_energies.emplace(ion, distribution_of(*table, transverse));
-}
-
-void build_energies(const Entry& entry, Case& result, Plasma& plasma, Problems& problems) {
-    const Entry& energies = entry["ion_energies"];
-    const Entry& bias = entry["rf_bias"];
-    plasma.mean_sheath_voltage = bias["mean_sheath"].number;
-    if (energies.is_given && bias.is_given) {
-        problems.add(energies.at, energies.path,
-                     "rf_bias and ion_energies both say how fast ions are; give one");
-        return;
-    }
-    const bool has_ions = !plasma.ions.empty() && plasma.ion_flux > 0;
-    if (!energies.is_given && !bias.is_given && has_ions)
+/// Electrons and ions: exactly one of flux and density says how many there are.
+void build_charges(const Entry& entry, Plasma& plasma, Problems& problems) {
+    const Entry &flux = entry["ion_flux"], &density = entry["electron_density"];
+    plasma.electron_temperature_ev = entry["electron_temperature"].number;
+    plasma.ion_flux = flux.number;
+    plasma.bulk_electron_density = density.number;
+    plasma.edge_to_bulk = entry["edge_to_bulk"].number;
+    plasma.negative_over_electrons = entry["negative_ions"]["edge_ratio"].number;
+    plasma.negative_temperature_ev = entry["negative_ions"]["temperature"].number;
+    plasma.common_bohm_speed = entry["bohm_speed"].text == "common";
+    plasma.ion_transverse_temperature_ev = entry["ion_transverse_temperature"].number;
+    plasma.ion_tilt_deg = entry["ion_tilt"]["angle"].number;
+    plasma.ion_azimuth_deg = entry["ion_tilt"]["azimuth"].number;
+    if (flux.is_given && density.is_given)
+        problems.add(density.at, density.path,
+                     "ion_flux and electron_density both say how many ions there are; give one");
+    if (!flux.is_given && !density.is_given && !entry["ions"].members.empty())
         problems.add(entry.at, entry.path,
-                     "nothing says how fast the ions are; give rf_bias: {mean_sheath: 120 V}, or "
-                     "ion_energies");
-    if (!energies.is_given || !energies.is_good) return;
-    if (energies["file"].is_given) {
-        add_table(energies, entry, "", result, plasma, problems);
-        return;
+                     "nothing says how many ions there are; give ion_flux, for example 1.1 mA/cm2, "
+                     "or electron_density");
+    build_ions(entry, plasma, problems);
+    const Entry& given = flux.is_given ? flux : density;
+    if (given.is_good && given.number > 0 && plasma.ions.empty() && !entry["ions"].is_given)
+        problems.add(given.at, entry.path,
+                     fmt::format("{} needs ions, for example ions: {{Ar+: 100 %}}",
+                                 flux.is_given ? "an ion flux" : "an electron density"));
+}
+
+void build_sheath_options(const Entry& entry, Plasma& plasma) {
+    const Entry& sheath = entry["sheath"];
+    plasma.sheath_options.edge =
+        sheath["edge"].text == "moving" ? fluxes::SheathEdge::moving : fluxes::SheathEdge::fixed;
+    plasma.sheath_options.collisions = sheath["collisions"].text != "ignored";
+    plasma.sheath_options.trajectories = static_cast<int>(sheath["trajectories"].number);
+    plasma.cross_sections = sheath["cross_sections"].text;
+}
+
+/// Shares of the gas by particles after the dissociation, from the flows; empty without flows.
+std::vector<std::pair<std::string, double>> gas_shares(const Entry& entry, Problems& problems) {
+    std::vector<std::pair<std::string, double>> shares;
+    const auto add = [&](const std::string& name, double amount) {
+        for (auto& [known, share] : shares)
+            if (known == name) {
+                share += amount;
+                return;
+            }
+        shares.emplace_back(name, amount);
+    };
+    const Entry &flows = entry["flows"], &dissociation = entry["dissociation"];
+    for (const auto& [gas, flow] : flows.members) {
+        const Entry& split = dissociation[gas];
+        add(gas, flow.number * (1 - split["fraction"].number));
+        for (const auto& [piece, count] : split["into"].members)
+            add(piece, flow.number * split["fraction"].number * count.number);
     }
-    for (const auto& [ion, table] : energies.members) {
-        const bool known = std::any_of(plasma.ions.begin(), plasma.ions.end(),
-                                       [&, name = ion](const auto& i) { return i.name == name; });
-        if (known)
-            add_table(table, entry, ion, result, plasma, problems);
+    for (const auto& [gas, split] : dissociation.members)
+        if (!flows[gas].is_given)
+            problems.add(split.at, split.path, "this gas does not flow; name it under flows");
+    double sum = 0;
+    for (const auto& share : shares)
+        sum += share.second;
+    if (flows.is_given && flows.is_good && !(sum > 0))
+        problems.add(flows.at, flows.path, "no gas flows at all");
+    for (auto& share : shares)
+        share.second /= sum > 0 ? sum : 1;
+    return shares;
+}
+
+/// Particles per volume at a pressure: p / (kB T) [nm^-3].
+double density_at(double pressure_pa, double temperature_k) {
+    constexpr double boltzmann_j_per_k = 1.380649e-23; // SI definition of 2019, exact
+    return pressure_pa / (boltzmann_j_per_k * temperature_k) * 1e-27;
+}
+
+void build_gas(const Entry& entry, Plasma& plasma, Problems& problems) {
+    plasma.gas_temperature_k = entry["gas_temperature"].number;
+    const Entry& pressure = entry["pressure"];
+    if (pressure.is_good) plasma.pressure_pa = pressure.number;
+    for (const auto& [gas, share] : gas_shares(entry, problems))
+        if (share > 0 && pressure.is_good)
+            plasma.gases.push_back(
+                {gas, share * density_at(pressure.number, plasma.gas_temperature_k)});
+}
+
+/// Density of one neutral [nm^-3], from its own pressure or from the gas; flux 0 until its mass is
+/// known.
+void build_neutral(const Entry& entry, const std::string& name, Plasma& plasma,
+                   Problems& problems) {
+    PlasmaNeutral neutral;
+    neutral.name = name;
+    const Entry& own = entry["temperature"];
+    neutral.temperature_k = own.is_given ? own.number : plasma.gas_temperature_k;
+    const Entry &flux = entry["flux"], &partial = entry["partial_pressure"];
+    if (flux.is_given && partial.is_given)
+        problems.add(partial.at, partial.path,
+                     "flux and partial_pressure are both given; give one");
+    neutral.flux = flux.number;
+    if (partial.is_good) neutral.density = density_at(partial.number, neutral.temperature_k);
+    if (!flux.is_given && !partial.is_given) {
+        const auto gas = std::find_if(plasma.gases.begin(), plasma.gases.end(),
+                                      [&](const PlasmaGas& g) { return g.name == name; });
+        if (gas != plasma.gases.end())
+            neutral.density = gas->density * plasma.gas_temperature_k / neutral.temperature_k;
         else
-            problems.add(table.at, table.path, "the plasma has no such ion");
+            problems.add(entry.at, entry.path,
+                         "nothing says how much of it there is; give flux or partial_pressure, or "
+                         "pressure and flows (and dissociation) from which it comes");
     }
-    for (const PlasmaIon& ion : plasma.ions)
-        if (energies["file"].is_given == false && !energies[ion.name].is_given)
-            problems.add(energies.at, energies.path, fmt::format("no table for {}", ion.name));
+    plasma.neutrals.push_back(neutral);
 }
 
 void list_unused(const Entry& entry, Plasma& plasma) {
-    for (const char* key : {"pressure", "source_power", "source_frequency", "gas_temperature"})
+    std::vector<const char*> unused = {"source_power", "source_frequency"};
+    const bool by_gas = std::any_of(plasma.neutrals.begin(), plasma.neutrals.end(),
+                                    [](const PlasmaNeutral& n) { return n.density > 0; });
+    const bool collides = plasma.sheath_options.collisions && plasma.ion_energies.empty();
+    if (plasma.gases.empty() || !(by_gas || collides)) unused.push_back("pressure");
+    if (!by_gas && !(collides && !plasma.gases.empty())) unused.push_back("gas_temperature");
+    for (const char* key : unused)
         if (entry[key].is_given) plasma.unused.push_back(std::string(key) + ": " + entry[key].text);
-    for (const auto& [gas, flow] : entry["flows"].members)
-        plasma.unused.push_back("flows." + gas + ": " + flow.text);
+    if (plasma.gases.empty() || !(by_gas || collides))
+        for (const auto& [gas, flow] : entry["flows"].members)
+            plasma.unused.push_back("flows." + gas + ": " + flow.text);
 }
 
 } // namespace
@@ -113,19 +165,15 @@ void build_plasmas(const Entry& root, Case& result, Problems& problems) {
     for (const auto& [name, entry] : plasmas.members) {
         Plasma plasma;
         plasma.name = name;
-        plasma.electron_temperature_ev = entry["electron_temperature"].number;
-        plasma.ion_flux = entry["ion_flux"].number;
-        plasma.ion_transverse_temperature_ev = entry["ion_transverse_temperature"].number;
-        for (const auto& [species, neutral] : entry["neutrals"].members)
-            plasma.neutrals.push_back(
-                {species, neutral["flux"].number, neutral["temperature"].number});
-        build_ions(entry, plasma, problems);
-        if (entry.is_good && entry["ion_flux"].is_good && plasma.ion_flux > 0 &&
-            plasma.ions.empty() && !entry["ions"].is_given)
-            problems.add(entry["ion_flux"].at, entry.path,
-                         "an ion flux needs ions, for example ions: {Ar+: 100 %}");
-        if (entry.is_good) build_energies(entry, result, plasma, problems);
-        list_unused(entry, plasma);
+        if (entry.is_good) {
+            build_charges(entry, plasma, problems);
+            build_sheath_options(entry, plasma);
+            build_gas(entry, plasma, problems);
+            for (const auto& [species, neutral] : entry["neutrals"].members)
+                if (neutral.is_good) build_neutral(neutral, species, plasma, problems);
+            build_bias(entry, result, plasma, problems);
+            list_unused(entry, plasma);
+        }
         result.plasmas.emplace(name, std::move(plasma));
     }
 }

@@ -1,6 +1,8 @@
 // SPDX-License-Identifier: Apache-2.0
 #include "engine/case_schema.hpp"
 
+#include "engine/case_schema_parts.hpp"
+
 namespace rille::engine {
 
 namespace {
@@ -85,89 +87,6 @@ Rule mask_rule() {
          later_rule("contour", "drawn mask profiles are not read; give thickness, sidewall_angle "
                                "and corner_radius")},
         "the mask as it stands before the etch");
-}
-
-Rule ion_energies_rule() {
-    const auto table = [](const std::string& key) {
-        return map_rule(
-            key,
-            {text_rule("file", "CSV table, relative to the case file").required(),
-             word_rule("referenced_to", {"wafer"}, "surface to which the energies refer")
-                 .by_default("wafer"),
-             quantity_rule("transverse_temperature", D::energy, zero_or_more(),
-                           "spread across the field, for tables of energy only; default: "
-                           "ion_transverse_temperature")},
-            "one table");
-    };
-    const Rule each =
-        dictionary_rule("", table("").required(), "one table for each ion, by its name");
-    return alternatives_rule("ion_energies", "file", {each, table("*")},
-                             "measured or computed energy (and angle) distribution at the wafer; "
-                             "one for all ions, or one for each by name");
-}
-
-Rule rf_bias_rule() {
-    const char* sheath = "the sheath model that turns it into ion energies comes later; give "
-                         "mean_sheath, or ion_energies";
-    return map_rule("rf_bias",
-                    {quantity_rule("mean_sheath", D::voltage, zero_or_more(),
-                                   "mean voltage across the sheath above the wafer")
-                         .required(),
-                     later_rule("frequency", sheath), later_rule("amplitude", sheath),
-                     later_rule("peak_to_peak", sheath), later_rule("self_bias", sheath),
-                     later_rule("power", sheath), later_rule("waveform", sheath),
-                     later_rule("pulse", sheath), later_rule("harmonics", sheath)},
-                    "what accelerates the ions");
-}
-
-Rule plasma_rule() {
-    const char* unused = " (kept with the result, not used by the model)";
-    Rule neutral = map_rule(
-        "",
-        {quantity_rule("flux", D::flux, zero_or_more(), "flux at the open wafer surface")
-             .required(),
-         quantity_rule("temperature", D::temperature, above_zero(),
-                       "temperature of this neutral in the gas")
-             .by_default("300 K"),
-         later_rule("pressure", "partial pressures are not turned into fluxes; give flux")},
-        "one neutral");
-    Rule neutrals = dictionary_rule("neutrals", neutral, "neutrals that reach the wafer, by name");
-    neutrals.members.push_back(
-        later_rule("from", "fluxes cannot be found from monitor rates; give each flux"));
-    neutrals.members.push_back(
-        later_rule("unknown", "fluxes cannot be found from monitor rates; give each flux"));
-    const Rule ions = dictionary_rule(
-        "ions", quantity_rule("", D::share, {0, 1}, "share of the ion flux").required(),
-        "ions by name with their shares, 100 % in all");
-    return map_rule(
-        "",
-        {text_rule("from", "name of a plasma to copy; keys given here replace the copied ones"),
-         quantity_rule("pressure", D::pressure, above_zero(), std::string("gas pressure") + unused),
-         dictionary_rule(
-             "flows", quantity_rule("", D::gas_flow, zero_or_more(), "flow of one gas").required(),
-             std::string("gas flows") + unused),
-         quantity_rule("source_power", D::power, zero_or_more(),
-                       std::string("source power") + unused),
-         quantity_rule("source_frequency", D::frequency, above_zero(),
-                       std::string("source frequency") + unused),
-         quantity_rule("gas_temperature", D::temperature, above_zero(),
-                       std::string("gas temperature") + unused),
-         quantity_rule("electron_temperature", D::energy, zero_or_more(),
-                       "of the electrons; half of it adds to the energy of the ions")
-             .by_default("3 eV"),
-         quantity_rule("ion_flux", D::ion_flux, zero_or_more(), "all ions together at the wafer")
-             .required(),
-         later_rule("electron_density",
-                    "the ion flux is not found from the density; give ion_flux"),
-         ions,
-         quantity_rule(
-             "ion_transverse_temperature", D::energy, zero_or_more(),
-             "of the ions across the field at the sheath edge: sets their spread in angle")
-             .by_default("0.1 eV"),
-         ion_energies_rule(), neutrals.by_default("{}"), rf_bias_rule(),
-         later_rule("collisions", "collisions in the sheath are not modelled; use ion_energies"),
-         later_rule("pulse", "pulsed plasmas are not modelled; use the mean, or several steps")},
-        "one state of the plasma");
 }
 
 Rule recipe_rule() {

@@ -10,6 +10,7 @@
 #include "engine/problems.hpp"
 #include "engine/run.hpp"
 #include "engine/run_output.hpp"
+#include "engine/sheath_output.hpp"
 
 #include <chrono>
 #include <ctime>
@@ -125,6 +126,22 @@ int check_command(const std::string& case_path, const CommonOptions& options) {
         std::cout << "warning: " << warning << '\n';
     for (const std::string& warning : charging_warnings(the_case))
         std::cout << "warning: " << warning << '\n';
+    return 0;
+}
+
+int sheath_command(const std::string& case_path, const std::string& folder, bool force,
+                   const CommonOptions& options) {
+    const Case the_case = load(case_path, options);
+    if (!folder.empty()) {
+        OutputFolder out(folder,
+                         force ? OutputFolder::Existing::force : OutputFolder::Existing::refuse);
+        write_sheath(out, the_case, true);
+    }
+    if (options.json)
+        std::cout << sheath_json(the_case).dump(2) << '\n';
+    else if (!options.quiet)
+        std::cout << sheath_table(the_case)
+                  << (folder.empty() ? "" : "written into " + folder + "\n");
     return 0;
 }
 

@@ -26,6 +26,10 @@ struct CommonOptions {
 int run_command(const std::string& case_path, const std::string& folder, bool force,
                 const CommonOptions&, const std::atomic<bool>& stop);
 int check_command(const std::string& case_path, const CommonOptions&);
+/// Prints what reaches the wafer in every plasma of a case; writes tables and the picture into
+/// `folder` unless it is empty.
+int sheath_command(const std::string& case_path, const std::string& folder, bool force,
+                   const CommonOptions&);
 /// Measures the last state that a run left in `folder` again, under the case kept there with the
 /// overrides given (`--set measure.cd.top=...`).
 int measure_command(const std::string& folder, const CommonOptions&);

@@ -33,7 +33,7 @@ std::string due(const Rule& rule) {
     if (rule.kind == Kind::list) return "a list";
     std::vector<std::string> keys;
     for (const Rule& member : rule.members)
-        if (member.later.empty() && !member.key.empty()) keys.push_back(member.key);
+        if (member.refusal.empty() && !member.key.empty()) keys.push_back(member.key);
     return keys.empty() || rule.kind == Kind::alternatives
                ? "a map of keys and values"
                : fmt::format("a map with {}", listed(keys, 6));
@@ -54,7 +54,7 @@ void report_unknown(const YamlNode& node, const YamlNode::Member& member, const 
     std::vector<std::string> allowed;
     std::vector<std::string> absent; // a key that is there already was not meant
     for (const Rule& known : rule.members) {
-        if (!known.later.empty()) continue;
+        if (!known.refusal.empty()) continue;
         allowed.push_back(known.key);
         if (!node.find(known.key)) absent.push_back(known.key);
     }
@@ -93,7 +93,7 @@ Entry default_entry(const YamlNode& parent, const Rule& rule) {
 /// spacing"): then its absence goes without saying.
 bool is_named_by_refusal(const YamlNode& node, const Rule& rule, const std::string& key) {
     for (const Rule& later : rule.members)
-        if (node.find(later.key) && later.later.find("give " + key) != std::string::npos)
+        if (node.find(later.key) && later.refusal.find("give " + key) != std::string::npos)
             return true;
     return false;
 }
@@ -103,11 +103,11 @@ void check_map(const YamlNode& node, const Rule& rule, Entry& entry, Problems& p
         const Rule* known = rule.member(member.key);
         if (!known)
             report_unknown(node, member, rule, problems);
-        else if (!known->later.empty())
-            problems.add(member.key_at, member.value.path, "not available yet: " + known->later);
+        else if (!known->refusal.empty())
+            problems.add(member.key_at, member.value.path, known->refusal);
     }
     for (const Rule& member : rule.members) {
-        if (!member.later.empty()) continue;
+        if (!member.refusal.empty()) continue;
         if (const YamlNode* value = node.find(member.key))
             entry.members.emplace_back(member.key, check(*value, member, problems));
         else if (member.is_required && !node.is_damaged &&
@@ -121,8 +121,8 @@ void check_map(const YamlNode& node, const Rule& rule, Entry& entry, Problems& p
 void check_dictionary(const YamlNode& node, const Rule& rule, Entry& entry, Problems& problems) {
     for (const YamlNode::Member& member : node.members) {
         const Rule* later = rule.member(member.key);
-        if (later && !later->later.empty())
-            problems.add(member.key_at, member.value.path, "not available yet: " + later->later);
+        if (later && !later->refusal.empty())
+            problems.add(member.key_at, member.value.path, later->refusal);
         else
             entry.members.emplace_back(member.key, check(member.value, rule.members[0], problems));
     }

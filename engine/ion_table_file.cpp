@@ -1,6 +1,7 @@
 // SPDX-License-Identifier: Apache-2.0
 #include "engine/ion_table_file.hpp"
 
+#include "engine/csv_rows.hpp"
 #include "engine/units.hpp"
 #include "engine/words.hpp"
 
@@ -8,9 +9,7 @@
 
 #include <algorithm>
 #include <cmath>
-#include <fstream>
 #include <numeric>
-#include <sstream>
 
 namespace rille::engine {
 
@@ -18,11 +17,8 @@ namespace {
 
 constexpr double pi = 3.14159265358979323846;
 
-struct Cell {
-    std::string text;
-    Location at;
-};
-using Row = std::vector<Cell>;
+using Cell = CsvCell;
+using Row = CsvRow;
 
 struct TableReader {
     std::string name;
@@ -31,40 +27,13 @@ struct TableReader {
     std::vector<Row> rows;
     Location quantity_at;
 
-    void split(const std::string& text) {
-        std::istringstream stream(text);
-        int line = 0;
-        for (std::string raw; std::getline(stream, raw);) {
-            ++line;
-            const std::string trim = trimmed(raw);
-            if (trim.empty()) continue;
-            if (trim[0] == '#')
-                read_header(trim.substr(1), {name, line, 1});
-            else
-                rows.push_back(split_row(raw, line));
-        }
+    void split(const CsvRows& csv) {
+        rows = csv.rows;
+        for (const auto& [key, cell] : csv.header)
+            read_header(key, cell.text, cell.at);
     }
 
-    Row split_row(const std::string& raw, int line) const {
-        Row row;
-        std::size_t start = 0;
-        while (start <= raw.size()) {
-            const std::size_t comma = std::min(raw.find(',', start), raw.size());
-            const std::string cell = raw.substr(start, comma - start);
-            const std::size_t skip = cell.find_first_not_of(" \t");
-            const int column = static_cast<int>(start + (skip == std::string::npos ? 0 : skip)) + 1;
-            row.push_back({trimmed(cell), {name, line, column}});
-            start = comma + 1;
-        }
-        while (row.size() > 1 && row.back().text.empty())
-            row.pop_back();
-        return row;
-    }
-
-    void read_header(const std::string& text, const Location& at) {
-        const std::size_t equals = text.find('=');
-        if (equals == std::string::npos) return; // a remark
-        const std::string key = trimmed(text.substr(0, equals));
+    void read_header(const std::string& key, const std::string& value, const Location& at) {
         static const std::vector<std::string> known = {
             "quantity",       "species",          "mass_amu",         "charge",
             "total_flux_m2s", "angle_convention", "energy_reference", "source"};
@@ -75,7 +44,6 @@ struct TableReader {
             return;
         }
         if (key == "quantity") quantity_at = at;
-        const std::string value = trimmed(text.substr(equals + 1));
         table.header[key] = value;
         check_header(key, value, at);
     }
@@ -100,18 +68,7 @@ struct TableReader {
         }
     }
 
-    double number(const Cell& cell, bool may_be_negative = false) {
-        const NumberText read = split_number(cell.text);
-        if (!read.error.empty())
-            problems.add(cell.at, "", read.error);
-        else if (!read.unit.empty())
-            problems.add(cell.at, "", fmt::format("{}: a plain number is due", quoted(cell.text)));
-        else if (!may_be_negative && read.value < 0)
-            problems.add(cell.at, "", fmt::format("{} is negative", quoted(cell.text)));
-        else
-            return read.value;
-        return 0;
-    }
+    double number(const Cell& cell) { return csv_number(cell, false, problems); }
 
     void edge(std::vector<double>& edges, const Cell& cell) {
         const std::size_t before = problems.size();
@@ -268,13 +225,10 @@ struct TableReader {
     }
 };
 
-} // namespace
-
-std::optional<IonTable> parse_ion_table(const std::string& text, const std::string& shown,
-                                        Problems& problems) {
+std::optional<IonTable> table_of(const CsvRows& csv, Problems& problems) {
     Problems own;
-    TableReader reader{shown, own, {}, {}, {}};
-    reader.split(text);
+    TableReader reader{csv.name, own, {}, {}, {}};
+    reader.split(csv);
     reader.read();
     if (own.empty()) reader.finish();
     for (const Problem& problem : own.sorted())
@@ -283,16 +237,18 @@ std::optional<IonTable> parse_ion_table(const std::string& text, const std::stri
     return std::move(reader.table);
 }
 
+} // namespace
+
+std::optional<IonTable> parse_ion_table(const std::string& text, const std::string& shown,
+                                        Problems& problems) {
+    return table_of(split_csv(text, shown), problems);
+}
+
 std::optional<IonTable> read_ion_table(const std::string& path, const std::string& shown,
                                        Problems& problems) {
-    std::ifstream file(path, std::ios::binary);
-    std::ostringstream text;
-    if (file) text << file.rdbuf();
-    if (!file || text.str().empty()) {
-        problems.add({shown, 0, 0}, "", "cannot be read, or is empty");
-        return std::nullopt;
-    }
-    return parse_ion_table(text.str(), shown, problems);
+    const std::size_t before = problems.size();
+    const CsvRows csv = read_csv(path, shown, problems);
+    return problems.size() == before ? table_of(csv, problems) : std::nullopt;
 }
 
 fluxes::IonDistribution distribution_of(const IonTable& table, double transverse_ev) {

@@ -50,7 +50,7 @@ Json map_schema(const Rule& rule) {
     Json properties = Json::object();
     Json required = Json::array();
     for (const Rule& member : rule.members) {
-        if (!member.later.empty()) continue;
+        if (!member.refusal.empty()) continue;
         properties[member.key] = schema_of(member);
         if (member.is_required) required.push_back(member.key);
     }

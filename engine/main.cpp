@@ -49,6 +49,9 @@ int dispatch(int argc, char** argv) {
     bool force = false;
     auto* run = app.add_subcommand("run", "Etch a case and write the result into a folder");
     auto* check = app.add_subcommand("check", "Read a case, show it in full and what it will cost");
+    std::string sheath_folder;
+    auto* sheath = app.add_subcommand(
+        "sheath", "Show what reaches the wafer: energies, angles and fluxes of the ions");
     auto* measure = app.add_subcommand("measure", "Measure a finished run again");
     auto* schema = app.add_subcommand("schema", "Print the JSON Schema of a case file");
     run->add_option("case", path, "Case file (YAML)")->required();
@@ -56,10 +59,16 @@ int dispatch(int argc, char** argv) {
     run->add_flag("--force", force, "Replace what an earlier run left in the folder");
     run->footer(engine::caution);
     check->add_option("case", path, "Case file (YAML)")->required();
+    sheath->add_option("case", path, "Case file (YAML)")->required();
+    sheath->add_option("-o", sheath_folder, "Folder for tables (CSV) and picture; default: none");
+    sheath->add_flag("--force", force, "Replace what an earlier command left in the folder");
+    sheath->footer("Voltages are those of a model, not permitted settings of a tool.\n" +
+                   std::string(engine::caution));
     measure->add_option("folder", folder, "Folder of a run")->required();
-    for (CLI::App* command : {run, check, measure})
+    for (CLI::App* command : {run, check, sheath, measure})
         add_common(*command, options);
     add_run_options(*run, options);
+    add_run_options(*sheath, options);
     try {
         app.parse(argc, argv);
     } catch (const CLI::ParseError& error) {
@@ -69,6 +78,7 @@ int dispatch(int argc, char** argv) {
     if (options.threads > 0)
         limit.emplace(tbb::global_control::max_allowed_parallelism, options.threads);
     if (*check) return engine::check_command(path, options);
+    if (*sheath) return engine::sheath_command(path, sheath_folder, force, options);
     if (*measure) return engine::measure_command(folder, options);
     if (*schema) return engine::schema_command();
     std::signal(SIGINT, on_signal);

@@ -13,8 +13,13 @@ inline constexpr const char* series = "front.pvd";
 inline constexpr const char* level_set = "front.vdb";
 inline constexpr const char* picture_svg = "profile.svg";
 inline constexpr const char* picture_png = "profile.png";
+inline constexpr const char* sheath_svg = "sheath.svg";
+inline constexpr const char* sheath_png = "sheath.png";
+inline constexpr const char* sheath_csv = "sheath.csv";
+inline constexpr const char* sheath_tables = "distributions"; ///< folder
 inline constexpr const char* frames = "frames";
-inline constexpr const char* all[] = {resolved_case, record,    history,     profile,    metrics,
-                                      series,        level_set, picture_svg, picture_png};
+inline constexpr const char* all[] = {resolved_case, record,     history,    profile,
+                                      metrics,       series,     level_set,  picture_svg,
+                                      picture_png,   sheath_svg, sheath_png, sheath_csv};
 
 } // namespace rille::engine::output_names

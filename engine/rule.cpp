@@ -61,6 +61,12 @@ Rule integer_rule(const std::string& key, const Range& range, const std::string&
     return rule;
 }
 
+Rule number_rule(const std::string& key, const Range& range, const std::string& meaning) {
+    Rule rule = rule_of(Rule::Kind::number, key, meaning);
+    rule.range = range;
+    return rule;
+}
+
 Rule truth_rule(const std::string& key, const std::string& meaning) {
     return rule_of(Rule::Kind::truth, key, meaning);
 }
@@ -111,8 +117,12 @@ Rule alternatives_rule(const std::string& key, const std::string& selector,
 }
 
 Rule later_rule(const std::string& key, const std::string& instead) {
+    return refused_rule(key, "not available yet: " + instead);
+}
+
+Rule refused_rule(const std::string& key, const std::string& sentence) {
     Rule rule = rule_of(Rule::Kind::anything, key, "");
-    rule.later = instead;
+    rule.refusal = sentence;
     return rule;
 }
 

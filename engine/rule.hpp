@@ -37,7 +37,7 @@ struct Rule {
     std::string form, pattern;
     std::string default_text; ///< as it would be written; empty = no default
     bool is_required = false;
-    std::string later; ///< not empty: refused by name with this sentence
+    std::string refusal; ///< not empty: refused by name with this sentence
     std::size_t least_items = 1, most_items = 1000000;
     std::string selector;
     std::vector<Rule> members;
@@ -54,6 +54,7 @@ Rule word_rule(const std::string& key, std::vector<std::string> words, const std
 Rule sentence_rule(const std::string& key, const std::string& form, const std::string& pattern,
                    const std::string& meaning);
 Rule integer_rule(const std::string& key, const Range&, const std::string& meaning);
+Rule number_rule(const std::string& key, const Range&, const std::string& meaning);
 Rule truth_rule(const std::string& key, const std::string& meaning);
 Rule quantity_rule(const std::string& key, Dimension, const Range&, const std::string& meaning);
 Rule quantities_rule(const std::string& key, Dimension, const Range&, const std::string& meaning);
@@ -65,5 +66,7 @@ Rule alternatives_rule(const std::string& key, const std::string& selector,
                        std::vector<Rule> alternatives, const std::string& meaning);
 /// A key that a later version will read; `instead` says what to use now.
 Rule later_rule(const std::string& key, const std::string& instead);
+/// A key that is never read because it would say too little; `sentence` says what to write.
+Rule refused_rule(const std::string& key, const std::string& sentence);
 
 } // namespace rille::engine

@@ -4,6 +4,7 @@
 #include "engine/case.hpp"
 #include "engine/output_names.hpp"
 #include "engine/profile_csv.hpp"
+#include "engine/sheath_output.hpp"
 
 #include <algorithm>
 #include <fmt/format.h>
@@ -48,6 +49,7 @@ Metrics RunOutput::finish(const RunResult& result) {
     const std::string picture = picture_svg(case_, fronts_, result.last, metrics);
     folder_.write(output_names::picture_svg, picture);
     folder_.write(output_names::picture_png, png_of(picture, png_scale));
+    write_sheath(folder_, case_, false);
     std::vector<std::string> files = folder_.written();
     files.insert(std::upper_bound(files.begin(), files.end(), output_names::record),
                  output_names::record);

@@ -9,6 +9,7 @@ namespace rille::engine {
 /// What a value measures, with the unit it is held in inside the program.
 enum class Dimension {
     length,           ///< nm
+    area,             ///< nm2
     time,             ///< s
     energy,           ///< eV (also temperatures of charged species)
     temperature,      ///< K, absolute: degC allowed

@@ -154,7 +154,7 @@ TEST_CASE("every key of the table has a meaning or a refusal, and its default is
         open.pop_back();
         ++rules;
         INFO(rule.key);
-        CHECK((!rule.meaning.empty() || !rule.later.empty()));
+        CHECK((!rule.meaning.empty() || !rule.refusal.empty()));
         if (rule.kind == Rule::Kind::sentence) {
             CHECK_FALSE(rule.form.empty());
         }

@@ -1,0 +1,41 @@
+// SPDX-License-Identifier: Apache-2.0
+#pragma once
+
+#include "fluxes/sheath_trajectories.hpp"
+
+#include <vector>
+
+namespace rille::fluxes {
+
+/// By which way the ions of one species were taken through the sheath.
+enum class SheathWay {
+    free_fall,   ///< steady voltage, no collisions: exact
+    closed_form, ///< damped voltage, no collisions
+    trajectories ///< followed one by one
+};
+
+/// Thickness over mean free path above which the closed forms, which know no collisions, are
+/// refused.
+constexpr double collisionless_below = 0.1;
+
+/// Chooses: collisions count where the thickness exceeds a tenth of the mean free path, and then
+/// ions are followed one by one; so they are under a moving edge, for which no closed form holds.
+SheathWay way_through(const Sheath&, const SheathIon&);
+
+/// What one ion species brings to the wafer.
+struct SheathArrival {
+    SheathWay way = SheathWay::free_fall;
+    std::vector<IonDistribution> ions;          ///< one
+    std::vector<IonDistribution> fast_neutrals; ///< one; none without charge exchange
+    double fast_neutrals_per_ion = 0;
+};
+
+/// Throws std::domain_error with a sentence where neither way holds: a voltage that is not positive
+/// at all times, or so many collisions that ions gain less than the thermal energy of the gas in a
+/// mean free path.
+SheathArrival arrive(const Sheath&, const SheathIon&, const TrajectorySampling&);
+
+/// Everything that `arrive` follows from, as numbers; equal numbers, equal arrivals.
+std::vector<double> content_of(const Sheath&, const SheathIon&, const TrajectorySampling&);
+
+} // namespace rille::fluxes
