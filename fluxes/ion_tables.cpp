@@ -1,6 +1,8 @@
 // SPDX-License-Identifier: Apache-2.0
 #include "fluxes/ion_tables.hpp"
 
+#include "fluxes/ion_laws.hpp"
+
 #include <tbb/blocked_range.h>
 #include <tbb/parallel_for.h>
 
@@ -30,6 +32,14 @@ double spacing_at(double psi, const std::vector<Grazing>& grazing, double coarse
         step = std::min(step, 0.25 * (g.spread + off));
     }
     return coarsen * step;
+}
+
+/// Angle between the wafer normal and the mean flight of the ions [rad].
+double tilt_of(const IonDistribution& ions) {
+    Vec3 sum(0, 0, 0);
+    for (const IonArc& arc : ions.arcs())
+        sum += (arc.from + arc.to) * arc.weight;
+    return std::atan2(std::hypot(sum.x, sum.y), -sum.z);
 }
 
 std::vector<double> march(double from, double to, const std::vector<Grazing>& grazing,
@@ -122,16 +132,23 @@ bool IonTables::serves(geometry::Symmetry symmetry, const std::vector<IonSource>
 void IonTables::place_angles(geometry::Symmetry symmetry) {
     const bool extruded = symmetry == geometry::Symmetry::extruded;
     std::vector<Grazing> grazing;
+    const auto add = [&](double at, double spread) {
+        spread = std::clamp(spread, 0.1 * degree, 10 * degree);
+        const bool known = std::any_of(grazing.begin(), grazing.end(), [&](const Grazing& g) {
+            return std::fabs(g.at - at) < 0.1 * spread && g.spread <= spread;
+        });
+        if (!known) grazing.push_back({at, spread});
+    };
     for (const IonSource& ion : ions_) {
-        const double spread = std::clamp(ion.distribution.spread_rad(), 0.1 * degree, 10 * degree);
-        const double mean = ion.distribution.mean_rad();
-        for (double side : {-0.5 * pi, 0.5 * pi}) {
-            const double at = mean + side;
-            const bool known = std::any_of(grazing.begin(), grazing.end(), [&](const Grazing& g) {
-                return std::fabs(g.at - at) < 0.1 * spread && g.spread <= spread;
-            });
-            if (!known) grazing.push_back({at, spread});
+        for (const IonSpread& bundle : ion.distribution.spreads()) {
+            if (extruded) add(bundle.mean - 0.5 * pi, bundle.spread);
+            add(bundle.mean + 0.5 * pi, bundle.spread);
         }
+        if (extruded) continue;
+        // Walls of every azimuth meet a leaning beam between 90 deg less and 90 deg more its tilt.
+        const double tilt = tilt_of(ion.distribution);
+        for (double part : {-1.0, -0.5, 0.0, 0.5, 1.0})
+            if (tilt > 0.1 * degree) add(0.5 * pi + part * tilt, 0.5 * tilt);
     }
     // Ions without a preferred side: angles without one, so that mirror images stay so.
     const bool even = extruded && std::all_of(ions_.begin(), ions_.end(), [](const IonSource& ion) {

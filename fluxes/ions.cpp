@@ -2,6 +2,7 @@
 #include "fluxes/ions.hpp"
 
 #include "fluxes/in_plane.hpp"
+#include "fluxes/ion_laws.hpp"
 
 #include <algorithm>
 #include <cmath>
@@ -19,121 +20,29 @@ void require(bool condition, const char* message) {
     if (!condition) throw std::invalid_argument(message);
 }
 
-Vec3 downwards(double slope, double azimuth) {
-    const double c = 1.0 / std::sqrt(1.0 + slope * slope);
-    return {slope * c * std::cos(azimuth), slope * c * std::sin(azimuth), -c};
-}
-
-/// Position in [edges[i], edges[i+1]] of a number on the running sum `cdf`.
-struct BinDraw {
-    std::size_t bin;
-    double part;
-};
-BinDraw draw(const std::vector<double>& cdf, double u) {
-    const auto above = std::upper_bound(cdf.begin(), cdf.end(), u);
-    std::size_t i = above == cdf.end() ? cdf.size() - 1 : std::size_t(above - cdf.begin());
-    while (i > 1 && !(cdf[i] > cdf[i - 1]))
-        --i;
-    const double span = cdf[i] - cdf[i - 1];
-    return {i - 1, span > 0 ? std::clamp((u - cdf[i - 1]) / span, 0.0, 1.0) : 0.5};
-}
-
-struct Sampler {
-    const std::array<double, 4>& u;
-
-    IonSample operator()(const ThermalFall& law) const {
-        const double across = -law.transverse_ev * std::log1p(-u[0]);
-        const double along = law.drop_ev - law.normal_ev * std::log1p(-u[2]);
-        const double slope = along > 0 ? std::sqrt(across / along) : 0.0;
-        return {across + along, downwards(slope, 2 * pi * u[1])};
-    }
-    IonSample operator()(const IonHistogram& law) const {
-        const BinDraw a = draw(law.angle_cdf, u[0]);
-        const double c = law.cosine[a.bin] + a.part * (law.cosine[a.bin + 1] - law.cosine[a.bin]);
-        const BinDraw e = draw(law.energy_cdf[a.bin], u[2]);
-        const double energy =
-            law.energy[e.bin] + e.part * (law.energy[e.bin + 1] - law.energy[e.bin]);
-        const double safe = std::max(c, 1e-9);
-        return {energy, downwards(std::sqrt(std::max(0.0, 1 - safe * safe)) / safe, 2 * pi * u[1])};
-    }
-    IonSample operator()(const IonBeam& law) const { return {law.energy_ev, law.direction}; }
-    IonSample operator()(const GaussianSlopes& law) const {
-        const double slope = law.tan_sigma * std::sqrt(-2.0 * std::log1p(-u[0]));
-        return {law.energy_ev, downwards(slope, 2 * pi * u[1])};
-    }
-};
-
-struct MeanEnergy {
-    double operator()(const ThermalFall& law) const {
-        return law.drop_ev + law.transverse_ev + law.normal_ev;
-    }
-    double operator()(const IonHistogram& law) const {
-        double sum = 0;
-        for (std::size_t e = 0; e < law.weight.size(); ++e)
-            for (double w : law.weight[e])
-                sum += w * 0.5 * (law.energy[e] + law.energy[e + 1]);
-        return sum;
-    }
-    double operator()(const IonBeam& law) const { return law.energy_ev; }
-    double operator()(const GaussianSlopes& law) const { return law.energy_ev; }
-};
-
-/// Share of the flux within a polar angle below 90 deg, given by its tangent.
-struct ShareWithin {
-    double tangent;
-
-    /// 1 - exp(-(V/Tperp) tan^2) / (1 + (Tpar/Tperp) tan^2), the two exponentials integrated.
-    double operator()(const ThermalFall& law) const {
-        if (law.transverse_ev == 0) return 1.0;
-        const double t2 = tangent * tangent / law.transverse_ev;
-        return 1.0 - std::exp(-law.drop_ev * t2) / (1.0 + law.normal_ev * t2);
-    }
-    double operator()(const IonHistogram& law) const {
-        const double c = 1.0 / std::sqrt(1.0 + tangent * tangent);
-        double sum = 0;
-        for (std::size_t a = 0; a + 1 < law.cosine.size(); ++a) {
-            const double upper = law.cosine[a], lower = law.cosine[a + 1];
-            const double part = std::clamp((upper - c) / (upper - lower), 0.0, 1.0);
-            sum += part * (law.angle_cdf[a + 1] - law.angle_cdf[a]);
-        }
-        return sum;
-    }
-    double operator()(const IonBeam& law) const {
-        return std::hypot(law.direction.x, law.direction.y) <= -law.direction.z * tangent ? 1.0
-                                                                                          : 0.0;
-    }
-    double operator()(const GaussianSlopes& law) const {
-        const double x = tangent / law.tan_sigma;
-        return -std::expm1(-0.5 * x * x);
-    }
-};
-
-struct AppendContent {
-    std::vector<double>& to;
-
-    void operator()(const ThermalFall& law) const {
-        to.insert(to.end(), {0, law.drop_ev, law.transverse_ev, law.normal_ev});
-    }
-    void operator()(const IonHistogram& law) const {
-        to.push_back(1);
-        to.push_back(static_cast<double>(law.energy.size()));
-        to.insert(to.end(), law.energy.begin(), law.energy.end());
-        to.insert(to.end(), law.cosine.begin(), law.cosine.end());
-        for (const auto& row : law.weight)
-            to.insert(to.end(), row.begin(), row.end());
-    }
-    void operator()(const IonBeam& law) const {
-        to.insert(to.end(), {2, law.energy_ev, law.direction.x, law.direction.y, law.direction.z});
-    }
-    void operator()(const GaussianSlopes& law) const {
-        to.insert(to.end(), {3, law.energy_ev, law.tan_sigma});
-    }
-};
-
 void check_edges(const std::vector<double>& edges, const char* message) {
     require(edges.size() >= 2, message);
     for (std::size_t i = 0; i < edges.size(); ++i)
         require(std::isfinite(edges[i]) && (i == 0 || edges[i] > edges[i - 1]), message);
+}
+
+/// Running sum of the shares from 0 to 1.
+std::vector<double> running_shares(const std::vector<double>& share) {
+    std::vector<double> cdf(1, 0.0);
+    for (double w : share) {
+        require(std::isfinite(w) && w >= 0, "shares must be finite and not negative");
+        cdf.push_back(cdf.back() + w);
+    }
+    const double sum = cdf.back();
+    require(sum > 0, "the shares are all zero");
+    for (double& c : cdf)
+        c /= sum;
+    return cdf;
+}
+
+double kept_by_tilt(const IonLaw& law) {
+    const auto* tilted = std::get_if<TiltedIons>(&law);
+    return tilted ? tilted->kept : 1.0;
 }
 
 } // namespace
@@ -216,18 +125,66 @@ IonDistribution IonDistribution::gaussian(double energy_ev, double tan_sigma) {
     return IonDistribution(std::make_shared<Impl>(IonLaw(GaussianSlopes{energy_ev, tan_sigma})));
 }
 
+IonDistribution IonDistribution::falling_spectrum(std::vector<double> normal_energy_edges_ev,
+                                                  std::vector<double> share, double transverse_ev) {
+    check_edges(normal_energy_edges_ev, "energy edges must be finite and strictly increasing");
+    require(normal_energy_edges_ev.front() >= 0, "ion energies must not be negative");
+    require(share.size() + 1 == normal_energy_edges_ev.size(), "one share per energy bin");
+    require(std::isfinite(transverse_ev) && transverse_ev >= 0,
+            "the transverse temperature must not be negative");
+    FallingSpectrum law;
+    law.cdf = running_shares(share);
+    law.energy = std::move(normal_energy_edges_ev);
+    law.transverse_ev = transverse_ev;
+    return IonDistribution(std::make_shared<Impl>(IonLaw(std::move(law))));
+}
+
+IonDistribution IonDistribution::mixture(std::vector<double> weight,
+                                         std::vector<IonDistribution> parts) {
+    require(!parts.empty() && weight.size() == parts.size(), "one weight per part of a mixture");
+    IonMixture law;
+    law.cdf = running_shares(weight);
+    for (std::size_t i = 0; i < parts.size(); ++i) {
+        const double share = law.cdf[i + 1] - law.cdf[i];
+        if (!(share > 0)) continue;
+        law.weight.push_back(share);
+        law.part.push_back(std::move(parts[i]));
+    }
+    if (law.part.size() == 1) return law.part.front();
+    law.cdf = running_shares(law.weight);
+    return IonDistribution(std::make_shared<Impl>(IonLaw(std::move(law))));
+}
+
+IonDistribution IonDistribution::tilted(double tilt_deg, double azimuth_deg) const {
+    require(tilt_deg >= 0 && tilt_deg <= 45, "ions can be tilted by 0 to 45 deg");
+    require(std::isfinite(azimuth_deg), "the azimuth of a tilt must be finite");
+    if (tilt_deg == 0) return *this;
+    if (const auto* one = std::get_if<IonBeam>(&impl_->law))
+        return beam(one->energy_ev, lean_towards(tilt_deg, azimuth_deg).turned(one->direction));
+    if (const auto* sum = std::get_if<IonMixture>(&impl_->law)) {
+        std::vector<double> weight;
+        std::vector<IonDistribution> parts;
+        for (std::size_t i = 0; i < sum->part.size(); ++i) {
+            parts.push_back(sum->part[i].tilted(tilt_deg, azimuth_deg));
+            weight.push_back(sum->weight[i] * kept_by_tilt(parts.back().impl_->law));
+        }
+        return mixture(std::move(weight), std::move(parts));
+    }
+    return IonDistribution(std::make_shared<Impl>(IonLaw(tilt_ions(*this, tilt_deg, azimuth_deg))));
+}
+
 IonSample IonDistribution::sample(const std::array<double, 4>& u) const {
-    return std::visit(Sampler{u}, impl_->law);
+    return sample_law(impl_->law, u);
 }
 
 double IonDistribution::mean_energy_ev() const {
-    return std::visit(MeanEnergy{}, impl_->law);
+    return mean_energy_of(impl_->law);
 }
 
 double IonDistribution::share_within_deg(double angle_deg) const {
     if (angle_deg < 0) return 0.0;
     if (angle_deg >= 90) return 1.0;
-    return std::visit(ShareWithin{std::tan(angle_deg * degree)}, impl_->law);
+    return share_within(impl_->law, std::tan(angle_deg * degree));
 }
 
 double IonDistribution::median_angle_deg() const {
@@ -256,8 +213,16 @@ double IonDistribution::spread_rad() const {
     return std::sqrt(sum);
 }
 
+std::vector<IonSpread> IonDistribution::spreads() const {
+    return spreads_of(impl_->law, *this);
+}
+
+std::vector<IonArc> IonDistribution::arcs() const {
+    return arcs_of(impl_->law);
+}
+
 void IonDistribution::append_content(std::vector<double>& numbers) const {
-    std::visit(AppendContent{numbers}, impl_->law);
+    append_law(impl_->law, numbers);
 }
 
 const InPlane& IonDistribution::in_plane() const {

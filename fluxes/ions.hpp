@@ -19,10 +19,17 @@ struct IonSample {
 };
 
 struct InPlane; // ion distribution seen in the plane of a trench: in_plane.hpp
+struct IonArc;  // piece of its quadrature over directions and energies: ion_laws.hpp
+
+/// Centre and width of a bundle of in-plane angles [rad].
+struct IonSpread {
+    double mean = 0, spread = 0;
+};
 
 /// Joint distribution of energy and direction of one ion species at the wafer, as a FLUX
 /// distribution through the wafer plane (no further cosine belongs to it). Azimuthally symmetric
-/// about the wafer normal, apart from `beam`. A value; copies share their data.
+/// about the wafer normal, apart from `beam`, `tilted` and mixtures of these. A value; copies share
+/// their data.
 class IonDistribution {
 public:
     /// Collisionless sheath: energy gain `drop_ev` (sheath voltage plus Te/2), transverse and
@@ -45,7 +52,8 @@ public:
     static IonDistribution mixture(std::vector<double> weight, std::vector<IonDistribution>);
     /// The same ions leaning by `tilt_deg` (0 to 45) from the wafer normal, towards `azimuth_deg`
     /// from +x to +y: an ion along the normal then travels towards that azimuth. What would come
-    /// from below the wafer plane is dropped and the rest normalised.
+    /// from below the wafer plane (or within half a degree of it) is dropped and the rest
+    /// normalised. Directions turn; shares of the flux stay what they were.
     IonDistribution tilted(double tilt_deg, double azimuth_deg) const;
     /// All ions at one energy along one direction (tests, tilted beams). Needs direction.z < 0.
     static IonDistribution beam(double energy_ev, const Vec3& direction);
@@ -62,6 +70,11 @@ public:
     /// Mean and standard deviation of the in-plane angle [rad], for placing angle nodes.
     double mean_rad() const;
     double spread_rad() const;
+    /// The bundles of ions that a grid of surface angles must resolve: of each part of a mixture
+    /// the core, and the whole where its tails reach much further than its core.
+    std::vector<IonSpread> spreads() const;
+    /// Deterministic quadrature over direction and energy, weights sum 1.
+    std::vector<IonArc> arcs() const;
     /// Appends the numbers that define the distribution; equal numbers, equal distribution.
     void append_content(std::vector<double>& numbers) const;
     /// Resolved by in-plane angle: quadrature nodes for everything that a trench needs.

@@ -104,12 +104,12 @@ private:
         // pair.
         const bool flat = domain_.extruded();
         const auto p0 = points.pair(i, 0), p1 = points.pair(i, 1);
-        const auto p2 = flat ? std::array<double, 2>{} : points.pair(i, 2);
+        const auto p2 = points.pair(i, 2);
         const Vec3 start(domain_.x_min() + domain_.width_x() * p0[0],
                          flat ? 0.0 : domain_.y_min() + domain_.width_y() * p0[1],
                          caster_.z_open());
         const IonSample ion = ions_[chunk.ion].distribution.sample(
-            flat ? std::array<double, 4>{p0[1], p1[0], p1[1], 0.5}
+            flat ? std::array<double, 4>{p0[1], p1[0], p1[1], p2[0]}
                  : std::array<double, 4>{p1[0], p1[1], p2[0], p2[1]});
         const std::uint64_t key = stream_key(batch_key, index, 1);
         double weight = 1, energy = ion.energy_ev;

@@ -20,11 +20,15 @@ struct Waveform {
 
     static Waveform steady(double volt);
     /// The period is that of the largest frequency that divides all of them (to 1 kHz); at least 64
-    /// samples a period of the fastest part. Throws std::invalid_argument if none is above zero or
-    /// the common period would hold more than 2^20 samples.
+    /// samples a period of the fastest part, at least 4096 in all, a power of two. Throws
+    /// std::invalid_argument if there is none, if one has a frequency of zero or below, or if the
+    /// common period would hold more than 2^20 samples.
     static Waveform sum_of(const std::vector<BiasComponent>&);
     /// `duty` of the period at `high_v`, the rest at `low_v`, 0 < duty < 1.
     static Waveform rectangular(double frequency_hz, double high_v, double low_v, double duty);
+
+    /// The same with a steady voltage added.
+    Waveform raised_by(double volt_added) const;
 
     bool is_steady() const { return volt.size() == 1; }
     double mean() const;
