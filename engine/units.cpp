@@ -52,6 +52,7 @@ const DimensionInfo& info(Dimension dimension) {
           {{"nm", 1}, {"um", 1e3}, {"angstrom", 0.1}, {"mm", 1e6}, {"µm", 1e3}, {"μm", 1e3}}}},
         {Dimension::area,
          {"an area", "707 cm2", {{"cm2", 1e14}, {"m2", 1e18}, {"mm2", 1e12}, {"nm2", 1}}}},
+        {Dimension::volume, {"a volume", "1.64e-30 m3", {{"nm3", 1}, {"m3", 1e27}}}},
         {Dimension::time,
          {"a time", "90 s", {{"s", 1}, {"min", 60}, {"ms", 1e-3}, {"us", 1e-6}, {"h", 3600}}}},
         {Dimension::energy,

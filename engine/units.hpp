@@ -10,6 +10,7 @@ namespace rille::engine {
 enum class Dimension {
     length,           ///< nm
     area,             ///< nm2
+    volume,           ///< nm3
     time,             ///< s
     energy,           ///< eV (also temperatures of charged species)
     temperature,      ///< K, absolute: degC allowed

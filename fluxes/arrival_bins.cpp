@@ -53,7 +53,7 @@ std::size_t bin_of(const std::vector<double>& edges, double value) {
 
 } // namespace
 
-IonDistribution distribution_of(const std::vector<Arrival>& arrivals) {
+ArrivalBins bins_of(const std::vector<Arrival>& arrivals) {
     if (arrivals.empty()) throw std::invalid_argument("a distribution needs at least one arrival");
     std::vector<double> energy, angle;
     for (const Arrival& a : arrivals) {
@@ -77,7 +77,15 @@ IonDistribution distribution_of(const std::vector<Arrival>& arrivals) {
                                             std::vector<double>(angle_edges.size() - 1, 0.0));
     for (std::size_t i = 0; i < arrivals.size(); ++i)
         weight[bin_of(energy_edges, energy[i])][bin_of(angle_edges, angle[i])] += 1;
-    return IonDistribution::histogram(energy_edges, angle_edges, std::move(weight));
+    return {energy_edges, angle_edges, std::move(weight)};
+}
+
+IonDistribution distribution_of(const ArrivalBins& bins) {
+    return IonDistribution::histogram(bins.energy_edges_ev, bins.angle_edges_deg, bins.weight);
+}
+
+IonDistribution distribution_of(const std::vector<Arrival>& arrivals) {
+    return distribution_of(bins_of(arrivals));
 }
 
 } // namespace rille::fluxes

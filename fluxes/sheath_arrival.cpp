@@ -1,27 +1,22 @@
 // SPDX-License-Identifier: Apache-2.0
 #include "fluxes/sheath_arrival.hpp"
 
+#include "fluxes/plasma_laws.hpp"
 #include "fluxes/sheath_filter.hpp"
 
 #include <stdexcept>
 
 namespace rille::fluxes {
 
-namespace {
-
-constexpr double boltzmann_ev_per_k = 8.617333262e-5; // CODATA 2018
-
 void check_range(const Sheath& sheath, const SheathIon& ion) {
     if (sheath.voltage.lowest() < 0)
         throw std::domain_error("the wafer would lie above the plasma for part of the period");
-    const double thermal_ev = boltzmann_ev_per_k * ion.gas_temperature_k;
+    const double thermal_ev = ev_per_kelvin * ion.gas_temperature_k;
     if (collisionality(sheath, ion) * thermal_ev > sheath.voltage.mean())
         throw std::domain_error("ions of " + ion.name +
                                 " gain less than the gas has in heat between two collisions: they "
                                 "drift, which neither the closed form nor trajectories describe");
 }
-
-} // namespace
 
 SheathWay way_through(const Sheath& sheath, const SheathIon& ion) {
     if (collisionality(sheath, ion) >= collisionless_below) return SheathWay::trajectories;
@@ -29,26 +24,45 @@ SheathWay way_through(const Sheath& sheath, const SheathIon& ion) {
     return sheath.edge == SheathEdge::moving ? SheathWay::trajectories : SheathWay::closed_form;
 }
 
+SheathArrival arrive_in_closed_form(const Sheath& sheath, const SheathIon& ion) {
+    SheathArrival arrival;
+    arrival.way = way_through(sheath, ion);
+    if (arrival.way == SheathWay::free_fall)
+        arrival.ions.push_back(IonDistribution::thermal_fall(
+            sheath.voltage.mean() + entry_energy_ev(sheath), ion.transverse_ev, ion.transverse_ev));
+    else
+        arrival.ions.push_back(damped_arrival(sheath, ion));
+    return arrival;
+}
+
+BinnedTrajectories follow_into_bins(const Sheath& sheath, const SheathIon& ion,
+                                    const TrajectorySampling& sampling) {
+    const Arrivals followed = follow_ions(sheath, ion, sampling);
+    BinnedTrajectories binned;
+    binned.ions = bins_of(followed.ions);
+    if (followed.fast_neutrals.empty()) return binned;
+    binned.fast_neutrals = bins_of(followed.fast_neutrals);
+    binned.fast_neutrals_per_ion = static_cast<double>(followed.fast_neutrals.size()) /
+                                   static_cast<double>(followed.ions.size());
+    return binned;
+}
+
+SheathArrival arrival_of(const BinnedTrajectories& binned) {
+    SheathArrival arrival;
+    arrival.way = SheathWay::trajectories;
+    arrival.ions.push_back(distribution_of(binned.ions));
+    if (binned.fast_neutrals_per_ion > 0)
+        arrival.fast_neutrals.push_back(distribution_of(binned.fast_neutrals));
+    arrival.fast_neutrals_per_ion = binned.fast_neutrals_per_ion;
+    return arrival;
+}
+
 SheathArrival arrive(const Sheath& sheath, const SheathIon& ion,
                      const TrajectorySampling& sampling) {
     check_range(sheath, ion);
-    SheathArrival arrival;
-    arrival.way = way_through(sheath, ion);
-    if (arrival.way == SheathWay::free_fall) {
-        arrival.ions.push_back(IonDistribution::thermal_fall(
-            sheath.voltage.mean() + entry_energy_ev(sheath), ion.transverse_ev, ion.transverse_ev));
-    } else if (arrival.way == SheathWay::closed_form) {
-        arrival.ions.push_back(damped_arrival(sheath, ion));
-    } else {
-        const Arrivals followed = follow_ions(sheath, ion, sampling);
-        arrival.ions.push_back(distribution_of(followed.ions));
-        if (!followed.fast_neutrals.empty()) {
-            arrival.fast_neutrals.push_back(distribution_of(followed.fast_neutrals));
-            arrival.fast_neutrals_per_ion = static_cast<double>(followed.fast_neutrals.size()) /
-                                            static_cast<double>(followed.ions.size());
-        }
-    }
-    return arrival;
+    if (way_through(sheath, ion) == SheathWay::trajectories)
+        return arrival_of(follow_into_bins(sheath, ion, sampling));
+    return arrive_in_closed_form(sheath, ion);
 }
 
 std::vector<double> content_of(const Sheath& sheath, const SheathIon& ion,

@@ -30,12 +30,23 @@ struct SheathArrival {
     double fast_neutrals_per_ion = 0;
 };
 
-/// Throws std::domain_error with a sentence where neither way holds: a voltage that is not positive
-/// at all times, or so many collisions that ions gain less than the thermal energy of the gas in a
-/// mean free path.
+/// Followed ions, sorted into bins.
+struct BinnedTrajectories {
+    ArrivalBins ions, fast_neutrals;
+    double fast_neutrals_per_ion = 0;
+};
+
+/// Throws std::domain_error with a sentence where no way holds: a voltage below zero, or so many
+/// collisions that ions gain less than the thermal energy of the gas in a mean free path.
+void check_range(const Sheath&, const SheathIon&);
+/// The ways without trajectories.
+SheathArrival arrive_in_closed_form(const Sheath&, const SheathIon&);
+BinnedTrajectories follow_into_bins(const Sheath&, const SheathIon&, const TrajectorySampling&);
+SheathArrival arrival_of(const BinnedTrajectories&);
+/// All of it: checked, by the way that holds.
 SheathArrival arrive(const Sheath&, const SheathIon&, const TrajectorySampling&);
 
-/// Everything that `arrive` follows from, as numbers; equal numbers, equal arrivals.
+/// Everything that trajectories follow from, as numbers; equal numbers, equal arrivals.
 std::vector<double> content_of(const Sheath&, const SheathIon&, const TrajectorySampling&);
 
 } // namespace rille::fluxes

@@ -37,8 +37,15 @@ struct Arrivals {
 /// Throws std::invalid_argument on a sheath that cannot be.
 Arrivals follow_ions(const Sheath&, const SheathIon&, const TrajectorySampling&);
 
-/// Joint distribution of energy and angle: bins by quantiles, so that narrow beams and wide tails
-/// are both resolved.
+/// Joint histogram of arrivals, weight[energy][angle]; without edges there are none.
+struct ArrivalBins {
+    std::vector<double> energy_edges_ev, angle_edges_deg;
+    std::vector<std::vector<double>> weight;
+};
+/// Bins as fine as the arrivals in them are worth, so that narrow beams and wide tails are both
+/// resolved.
+ArrivalBins bins_of(const std::vector<Arrival>&);
+IonDistribution distribution_of(const ArrivalBins&);
 IonDistribution distribution_of(const std::vector<Arrival>&);
 
 } // namespace rille::fluxes
