@@ -62,7 +62,7 @@ TEST_CASE("the trench example is read into inside units") {
     CHECK(plasma.ions.at(0).name == "Cl2+");
     CHECK(plasma.ions.at(0).share == Approx(0.7));
     CHECK(plasma.neutrals.at(0).flux == Approx(3e4));
-    CHECK(plasma.mean_sheath_voltage == 120);
+    CHECK(plasma.bias.value == 120);
     CHECK(plasma.unused == std::vector<std::string>{"pressure: 8 mTorr", "source_power: 500 W"});
     CHECK(c.wafer_temperature_k == Approx(323.15));
     REQUIRE(c.steps.size() == 2);
@@ -212,7 +212,7 @@ TEST_CASE("a plasma copies another; what is given replaces") {
                                   "neutrals: {Cl: {flux: 1e18 /cm2/s}}}\nchemistry:");
     const Case c = parse_case(text, "case.yaml", ".");
     const Plasma& soft = c.plasmas.at("soft");
-    CHECK(soft.mean_sheath_voltage == 40);
+    CHECK(soft.bias.value == 40);
     CHECK(soft.neutrals.at(0).flux == Approx(1e4));
     CHECK(soft.neutrals.at(0).temperature_k == 300); // the whole key is replaced
     CHECK(soft.ion_flux == c.plasmas.at("main").ion_flux);
