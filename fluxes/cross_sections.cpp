@@ -75,6 +75,17 @@ double capture_nm2(double energy_ev, double ion_mass_amu, double gas_mass_amu,
     return area_m2 * nm2_per_m2;
 }
 
+CollisionProcess capture_process(CollisionProcess::Kind kind, double ion_mass_amu, std::string gas,
+                                 double gas_mass_amu, double gas_density,
+                                 double polarisability_nm3) {
+    CollisionProcess process{kind, std::move(gas), gas_mass_amu, gas_density, energy_grid(), {}};
+    for (const double e : process.energy_ev)
+        process.cross_section_nm2.push_back(
+            capture_nm2(e, ion_mass_amu, gas_mass_amu, polarisability_nm3));
+    check_process(process);
+    return process;
+}
+
 CollisionProcess constant_process(CollisionProcess::Kind kind, std::string gas, double gas_mass_amu,
                                   double gas_density, double cross_section_nm2) {
     CollisionProcess process{kind,        std::move(gas), gas_mass_amu,

@@ -31,6 +31,11 @@ std::vector<CollisionProcess> argon_in_argon(double gas_density, const PhelpsArg
 double capture_nm2(double energy_ev, double ion_mass_amu, double gas_mass_amu,
                    double polarisability_nm3);
 
+/// Capture as a process, tabulated from 0.1 eV to 10 keV.
+CollisionProcess capture_process(CollisionProcess::Kind, double ion_mass_amu, std::string gas,
+                                 double gas_mass_amu, double gas_density,
+                                 double polarisability_nm3);
+
 /// The same cross section at every energy. Negative numbers and masses not above zero throw
 /// std::invalid_argument.
 CollisionProcess constant_process(CollisionProcess::Kind, std::string gas, double gas_mass_amu,

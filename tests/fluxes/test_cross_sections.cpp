@@ -87,6 +87,10 @@ TEST_CASE("capture by a polarised neutral", "[sheath]") {
     CHECK(capture_nm2(1, 31.998, 31.998, 1.58e-3) == Approx(0.300).epsilon(2e-3));
     CHECK(capture_nm2(1, 70.906, 70.906, 4.61e-3) == Approx(0.512).epsilon(2e-3));
     CHECK(capture_nm2(4, 40, 40, 1.64e-3) == Approx(0.5 * capture_nm2(1, 40, 40, 1.64e-3)));
+    const CollisionProcess capture = capture_process(Kind::isotropic, 40, "Ar", 40, 1, 1.64e-3);
+    for (const double e : {0.13, 7.7, 940.0})
+        CHECK(cross_section_nm2(capture, e) ==
+              Approx(capture_nm2(e, 40, 40, 1.64e-3)).epsilon(1e-9));
     CHECK_THROWS_AS(capture_nm2(0, 40, 40, 1.64e-3), std::invalid_argument);
 }
 
