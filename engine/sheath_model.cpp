@@ -192,21 +192,28 @@ private:
         phase.debye_nm = state.debye_length_nm;
         phase.ion_flux = state.ion_flux;
         phase.floating_v = state.floating_drop_v;
-        std::vector<fluxes::SheathIon> ions;
-        for (std::size_t i = 0; i < plasma_.ions.size(); ++i)
-            ions.push_back(sheath_ion(plasma_, i, processes(i)));
-        std::vector<double> weight;
-        for (const PlasmaIon& ion : plasma_.ions)
-            weight.push_back(ion.share);
-        const fluxes::SheathSetup setup = fluxes::make_sheath(
-            state.electron_temperature_ev, state.edge_electrons, voltage, ions, weight);
-        phase.sheath = setup.sheath;
-        phase.sheath.edge = plasma_.sheath_options.edge;
-        phase.width_law = setup.law;
-        for (const std::string& note : setup.notes)
-            warn(name.empty() ? note : "bias " + name + ": " + note);
+        const fluxes::SheathAndThickness made =
+            fluxes::make_sheath(state.electron_temperature_ev, state.edge_electrons, voltage,
+                                mean_free_path_nm(voltage.mean()), plasma_.gas_temperature_k,
+                                plasma_.sheath_options.edge);
+        phase.sheath = made.sheath;
+        phase.width_law = plasma_.sheath_options.edge == fluxes::SheathEdge::moving ? "matrix"
+                          : made.thickness.law == fluxes::SheathLaw::collisional
+                              ? "collisional Child law"
+                              : "Child's law";
+        for (const fluxes::SheathNote& note : made.thickness.notes)
+            warn((name.empty() ? "" : "bias " + name + ": ") + fluxes::in_words(note));
         check_pulse(phase);
         result_.phases.push_back(std::move(phase));
+    }
+
+    /// Of the mixture of ions: rates of collision are averaged over the flux.
+    double mean_free_path_nm(double energy_ev) const {
+        double per_nm = 0;
+        for (std::size_t i = 0; i < plasma_.ions.size(); ++i)
+            per_nm += plasma_.ions[i].share /
+                      fluxes::mean_free_path_nm(sheath_ion(plasma_, i, processes(i)), energy_ev);
+        return 1 / per_nm;
     }
 
     /// A slow pulse is a sum of two steady states only if ions cross the sheath much faster.

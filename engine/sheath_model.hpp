@@ -14,7 +14,7 @@ struct SheathPhase {
     std::string name; ///< "on", "off"; "" if the bias is not pulsed
     double share = 1; ///< of the time
     fluxes::Sheath sheath;
-    std::string width_law; ///< "Child", "collisional Child", "matrix"
+    std::string width_law; ///< "Child's law", "collisional Child law", "matrix"
     double debye_nm = 0;
     double ion_flux = 0;   ///< all ions [nm^-2 s^-1]
     double floating_v = 0; ///< fall to a floating wall, from the sheath edge
