@@ -120,7 +120,7 @@ const Entry* strength_of(const Entry& bias, Problems& problems) {
         }
         strength = &entry;
     }
-    if (!strength)
+    if (!strength && !bias.has_refused)
         problems.add(
             bias.at, bias.path,
             fmt::format("nothing says how strong the bias is; give one of {}", listed(ways)));

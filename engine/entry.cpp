@@ -103,8 +103,10 @@ void check_map(const YamlNode& node, const Rule& rule, Entry& entry, Problems& p
         const Rule* known = rule.member(member.key);
         if (!known)
             report_unknown(node, member, rule, problems);
-        else if (!known->refusal.empty())
+        else if (!known->refusal.empty()) {
             problems.add(member.key_at, member.value.path, known->refusal);
+            entry.has_refused = true;
+        }
     }
     for (const Rule& member : rule.members) {
         if (!member.refusal.empty()) continue;

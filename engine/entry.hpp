@@ -15,6 +15,7 @@ struct Entry {
     const Rule* rule = nullptr;
     bool is_given = false; ///< written by the user
     bool is_good = false;  ///< holds a value (given or default); false: absent or already reported
+    bool has_refused = false; ///< a map: a key that is refused by name was written
     Location at;
     std::string path;
     std::string text;            ///< scalars as written

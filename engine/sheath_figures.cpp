@@ -67,8 +67,10 @@ double half_width_deg(const fluxes::IonDistribution& ions) {
 std::vector<double> quantile_edges(const std::vector<double>& sorted, int bins, double first,
                                    double last) {
     std::vector<double> edges = {first};
-    for (int b = 1; b < bins; ++b) {
-        const double edge = sorted[sorted.size() * static_cast<std::size_t>(b) / bins];
+    for (int b = 1; b <= bins; ++b) {
+        // The last bin holds half a per cent, so that readers do not take the table for cut off.
+        const double share = b < bins ? static_cast<double>(b) / bins : 0.995;
+        const double edge = sorted[static_cast<std::size_t>(share * sorted.size())];
         if (edge > edges.back() * (1 + 1e-9) + 1e-9 && edge < last * (1 - 1e-9))
             edges.push_back(edge);
     }

@@ -22,6 +22,9 @@ using fluxes::IonDistribution;
 
 /// Changes when trajectories do: what was kept before is then not found.
 constexpr double trajectories_version = 1;
+/// Child's law is off by this share of the field at the wafer at a voltage of ten electron
+/// temperatures: below that its thickness is no more than a guess.
+constexpr double weak_field_matters = 0.3;
 
 fluxes::PlasmaState state_of(const Plasma& plasma, double electron_ev, double ion_flux) {
     fluxes::PlasmaMix mix;
@@ -201,8 +204,12 @@ private:
                           : made.thickness.law == fluxes::SheathLaw::collisional
                               ? "collisional Child law"
                               : "Child's law";
-        for (const fluxes::SheathNote& note : made.thickness.notes)
-            warn((name.empty() ? "" : "bias " + name + ": ") + fluxes::in_words(note));
+        for (const fluxes::SheathNote& note : made.thickness.notes) {
+            const bool slight = note.kind == fluxes::SheathNote::Kind::weak_field &&
+                                note.value < weak_field_matters;
+            add(slight ? result_.notes : result_.warnings,
+                (name.empty() ? "" : "bias " + name + ": ") + fluxes::in_words(note));
+        }
         check_pulse(phase);
         result_.phases.push_back(std::move(phase));
     }
@@ -288,11 +295,10 @@ private:
         return i < collisions_.size() ? collisions_[i] : none;
     }
 
-    void warn(const std::string& text) {
-        if (std::find(result_.warnings.begin(), result_.warnings.end(), text) ==
-            result_.warnings.end())
-            result_.warnings.push_back(text);
+    static void add(std::vector<std::string>& list, const std::string& text) {
+        if (std::find(list.begin(), list.end(), text) == list.end()) list.push_back(text);
     }
+    void warn(const std::string& text) { add(result_.warnings, text); }
 
     const Plasma& plasma_;
     const std::vector<std::vector<fluxes::CollisionProcess>>& collisions_;

@@ -42,6 +42,7 @@ struct SheathResult {
     double plasma_potential_v = 0;   ///< bulk of the plasma over a floating wall
     std::vector<IonAtWafer> ions;
     std::vector<std::string> warnings; ///< where the model leaves its range, in plain words
+    std::vector<std::string> notes;    ///< what limits it less than that
 };
 
 /// Takes a plasma's ions to the wafer. `collisions` holds the processes of each ion, in the order

@@ -94,6 +94,8 @@ std::string plasma_table(const Plasma& plasma) {
                             neutral.flux * 1e14, neutral.temperature_k);
     for (const std::string& warning : plasma.arrivals->warnings)
         text += "  warning: " + warning + "\n";
+    for (const std::string& note : plasma.arrivals->notes)
+        text += "  note: " + note + "\n";
     if (!plasma.unused.empty()) {
         text += "  not used by the model:";
         for (const std::string& set_point : plasma.unused)
