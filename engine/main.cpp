@@ -10,6 +10,7 @@
 #include <csignal>
 #include <iostream>
 #include <tbb/global_control.h>
+#include <unistd.h>
 
 namespace {
 
@@ -17,11 +18,14 @@ using namespace rille;
 
 std::atomic<bool> stop{false};
 volatile std::sig_atomic_t signal_number = 0;
+volatile std::sig_atomic_t quiet = 0;
 
 void on_signal(int number) {
     if (stop) std::_Exit(128 + number); // asked twice: the files written so far are whole
     signal_number = number;
     stop = true;
+    constexpr char stopping[] = "\nstopping after this refresh; once more to stop at once\n";
+    if (!quiet && write(STDERR_FILENO, stopping, sizeof stopping - 1) < 0) quiet = 1;
 }
 
 void add_common(CLI::App& command, engine::CommonOptions& options) {
@@ -71,6 +75,7 @@ int dispatch(int argc, char** argv) {
     if (*check) return engine::check_command(path, options);
     if (*measure) return engine::measure_command(folder, options);
     if (*schema) return engine::schema_command();
+    quiet = options.quiet;
     std::signal(SIGINT, on_signal);
     std::signal(SIGTERM, on_signal);
     const int status = engine::run_command(path, folder, force, options, stop);

@@ -14,6 +14,7 @@ inline constexpr const char* level_set = "front.vdb";
 inline constexpr const char* picture_svg = "profile.svg";
 inline constexpr const char* picture_png = "profile.png";
 inline constexpr const char* frames = "frames";
+inline constexpr const char* inputs = "inputs"; ///< copies of the files that the case names
 inline constexpr const char* all[] = {resolved_case, record,    history,     profile,    metrics,
                                       series,        level_set, picture_svg, picture_png};
 

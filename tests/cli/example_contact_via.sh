@@ -8,9 +8,12 @@ work=$(mktemp -d)
 trap 'rm -rf "$work"' EXIT
 
 # contact-via: the oxide thinned, so that a coarse run takes seconds.
-"$rille" run "$root/examples/contact-via/case.yaml" --set 'spacing=8 nm' --set 'mask.thickness=64 nm' \
-    --set 'stack.oxide.thickness=64 nm' --set 'sampling={rays_per_point: 32, ions_per_species: 8192}' \
-    -o "$work/via" --quiet || { echo "FAILED: contact-via stops with status $?"; exit 1; }
+reduced=(--set 'spacing=8 nm' --set 'mask.thickness=64 nm' --set 'stack.oxide.thickness=64 nm'
+    --set 'sampling={rays_per_point: 32, ions_per_species: 8192}')
+"$rille" run "$root/examples/contact-via/case.yaml" "${reduced[@]}" -o "$work/via" --quiet ||
+    { echo "FAILED: contact-via stops with status $?"; exit 1; }
+"$rille" check "$root/examples/contact-via/case.yaml" "${reduced[@]}" --json >"$work/estimate.json" || exit 1
+python3 "$root/tests/support/compare_estimate.py" "$work/estimate.json" "$work/via/run.json" || exit 1
 python3 - "$work/via" <<'P' || exit 1
 import json, sys
 out = sys.argv[1]
