@@ -121,10 +121,6 @@ int check_command(const std::string& case_path, const CommonOptions& options) {
         return 0;
     }
     std::cout << the_case.shown_yaml << '\n' << estimate_text(the_case, estimate);
-    for (const std::string& warning : the_case.warnings)
-        std::cout << "warning: " << warning << '\n';
-    for (const std::string& warning : estimate.warnings)
-        std::cout << "warning: " << warning << '\n';
     return 0;
 }
 

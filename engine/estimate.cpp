@@ -80,15 +80,18 @@ Estimate estimate_run(const Case& the_case) {
 
 std::string estimate_text(const Case& the_case, const Estimate& e) {
     std::ostringstream text;
-    text << "grid: " << the_case.domain.cells_x;
+    text << "# grid: " << the_case.domain.cells_x;
     if (!the_case.domain.extruded()) text << " x " << the_case.domain.cells_y;
     text << " cells of " << the_case.domain.spacing << " nm across, about " << e.voxels
          << " voxels and " << e.elements << " surface elements at the end\n"
-         << "rays: " << the_case.rays_per_element << " per element and refresh, "
+         << "# rays: " << the_case.rays_per_element << " per element and refresh, "
          << the_case.ions_per_species << " reflected ions per species\n"
-         << "memory: about " << std::ceil(e.memory_mb) << " MB at most\n"
-         << "time: about " << duration_text(e.process_s) << " of process, " << e.refreshes
+         << "# memory: about " << std::ceil(e.memory_mb) << " MB at most\n"
+         << "# time: about " << duration_text(e.process_s) << " of process, " << e.refreshes
          << " refreshes, about " << duration_text(e.wall_seconds) << " on this machine\n";
+    for (const auto* list : {&the_case.warnings, &e.warnings})
+        for (const std::string& warning : *list)
+            text << "# warning: " << warning << '\n';
     return text.str();
 }
 

@@ -23,6 +23,7 @@ struct Estimate {
 /// depth is the open field's, so what only happens inside a feature (a slower floor, a microtrench)
 /// is not in it.
 Estimate estimate_run(const Case&);
+/// Lines of a YAML comment, so that they can stand below the case and the whole is still a case.
 std::string estimate_text(const Case&, const Estimate&);
 nlohmann::json estimate_json(const Case&, const Estimate&);
 
