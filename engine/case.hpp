@@ -44,6 +44,13 @@ struct Target {
     std::string text; ///< as written
 };
 
+/// A file that the case names (chemistry, ion table), as it was when the case was read.
+struct InputFile {
+    std::string path;    ///< absolute
+    std::string name;    ///< what a run calls its copy: "inputs/analyser.csv"
+    std::string content; ///< the whole file
+};
+
 /// Everything that a case file says, checked and in inside units (nm, s, eV, K, nm^-2 s^-1).
 struct Case {
     std::string title;
@@ -59,7 +66,7 @@ struct Case {
     double liner_thickness = 0; ///< [nm] conformal film at the start, 0 = none
     int liner_material = -1;
     std::map<std::string, Plasma> plasmas;
-    std::string chemistry;                         ///< name or path as written
+    std::string chemistry;                         ///< name, or name of its file
     fluxes::Mechanism mechanism;                   ///< loaded for `materials`
     std::vector<fluxes::IonReflection> reflection; ///< per material
     /// How many parameters of the mechanism are of each standing.
@@ -74,7 +81,11 @@ struct Case {
     int rays_per_element = 64;
     int ions_per_species = 65536;
     double refresh_move = 0.5; ///< [cells] arrivals are renewed after this movement of the front
-    std::string resolved_yaml; ///< the case as understood, every default filled in
+    std::vector<InputFile> inputs;
+    /// The case as understood, every default filled in; named files by the names of their copies,
+    /// so that it can be run again from the folder that a run leaves.
+    std::string resolved_yaml;
+    std::string shown_yaml; ///< the same with the absolute paths of named files
     std::vector<std::string> warnings;
 };
 

@@ -19,6 +19,10 @@ void copy_plasmas(YamlNode& root, Problems&);
 /// Makes the paths of files absolute: they are relative to the folder of the case.
 void absolute_files(YamlNode& root, const std::string& folder);
 
+/// Reads every file that the case names into `inputs` and puts the names of the copies in place of
+/// the paths.
+void keep_inputs(Entry& root, Case&);
+
 /// Index of a material in the run's list, added if it is new; 0 for a name already reported.
 int material_index(Case&, const Entry& name);
 

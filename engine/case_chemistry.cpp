@@ -5,6 +5,7 @@
 #include "engine/version.hpp"
 
 #include <algorithm>
+#include <filesystem>
 
 namespace rille::engine {
 
@@ -61,7 +62,7 @@ ChemistryRequest request_of(const Entry& root, const std::string& folder, const 
 void build_chemistry(const Entry& root, const std::string& folder, Case& result,
                      Problems& problems) {
     if (!root["chemistry"].is_good) return;
-    result.chemistry = root["chemistry"].text;
+    result.chemistry = std::filesystem::path(root["chemistry"].text).filename().string();
     const ChemistryRequest request = request_of(root, folder, result);
     const MaterialsLibrary library = load_materials(request.configs, problems);
     std::optional<Chemistry> chemistry = load_chemistry(request, library, problems);

@@ -30,6 +30,7 @@ void build_sampling(const Entry& root, Case& result, Problems& problems) {
     result.rays_per_element = batched(sampling["rays_per_point"], problems);
     result.ions_per_species = batched(sampling["ions_per_species"], problems);
     result.seed = static_cast<std::uint64_t>(sampling["seed"].number);
+    result.refresh_move = sampling["renew_after"].number;
 }
 
 Case build(YamlNode& node, const std::string& name, const std::string& folder,
@@ -56,6 +57,8 @@ Case build(YamlNode& node, const std::string& name, const std::string& folder,
         build_arrivals(root, result, problems);
     }
     problems.throw_if_any();
+    result.shown_yaml = to_yaml(root);
+    keep_inputs(root, result);
     result.resolved_yaml = to_yaml(root);
     return result;
 }

@@ -98,7 +98,7 @@ struct MaskBuilder {
                                          : "the pitch must be wider"));
             return false;
         }
-        warn_coarse(opening);
+        check_cells(item, opening.name, least);
         result.mask.openings.push_back(opening);
         return true;
     }
@@ -115,12 +115,19 @@ struct MaskBuilder {
                std::abs(std::abs(centre) - half) <= slack;
     }
 
-    void warn_coarse(const Opening& opening) {
-        const double cells = opening.width_x / result.domain.spacing;
-        if (result.domain.cells_x > 1 && cells < 8)
+    /// An opening of fewer than three cells has no shape; one of fewer than eight no accurate CD.
+    void check_cells(const Entry& item, const std::string& name, double width) {
+        if (result.domain.cells_x < 1) return;
+        const double cells = width / result.domain.spacing;
+        if (cells < 3)
+            problems.add(item.at, item.path,
+                         fmt::format("{:.4g} nm are {:.2g} cells of {:.4g} nm: too few for any "
+                                     "shape; 10 or more resolve a CD, spacing: {:.3g} nm",
+                                     width, cells, result.domain.spacing, width / 10));
+        else if (cells < 8)
             result.warnings.push_back(fmt::format("opening {} is only {:.3g} cells wide; 10 or "
                                                   "more resolve its CD",
-                                                  opening.name, cells));
+                                                  name, cells));
     }
 
     /// Openings must leave some mask between them, at its bottom and at its top.

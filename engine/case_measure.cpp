@@ -243,7 +243,14 @@ void build_measure(Entry& root, Case& result, Problems& problems) {
     for (const auto& [label, entry] : places->members) {
         if (!entry.is_good || result.films.empty()) continue;
         const std::optional<double> z = PlaceReader{entry, result, problems}.read();
-        if (z) result.cd_places[label] = {entry.text, *z};
+        if (!z) continue;
+        const double top = result.mask.thickness + result.liner_thickness;
+        if (*z >= top && !result.mask.openings.empty())
+            problems.add(entry.at, entry.path,
+                         fmt::format("{} is above the mask, which ends {:.4g} nm above the stack: "
+                                     "there is no CD",
+                                     quoted(entry.text), top));
+        result.cd_places[label] = {entry.text, *z};
     }
 }
 

@@ -121,11 +121,7 @@ int check_command(const std::string& case_path, const CommonOptions& options) {
         std::cout << estimate_json(the_case, estimate).dump(2) << '\n';
         return 0;
     }
-    std::cout << the_case.resolved_yaml << '\n' << estimate_text(the_case, estimate);
-    for (const std::string& warning : the_case.warnings)
-        std::cout << "warning: " << warning << '\n';
-    for (const std::string& warning : charging_warnings(the_case))
-        std::cout << "warning: " << warning << '\n';
+    std::cout << the_case.shown_yaml << '\n' << estimate_text(the_case, estimate);
     return 0;
 }
 

@@ -7,7 +7,6 @@
 #include "geometry/band.hpp"
 
 #include <algorithm>
-#include <chrono>
 #include <cmath>
 #include <nlohmann/json.hpp>
 #include <sstream>
@@ -15,61 +14,90 @@
 namespace rille::engine {
 namespace {
 
-/// Area of the walls [nm^2, extruded nm] that the expected depth adds.
-double wall_area(const Case& the_case, double depth) {
-    double area = 0;
+constexpr double pi = 3.14159265358979;
+constexpr double pictures_mb = 25; // what drawing and writing the result needs beside the run
+constexpr int frames_a_run = 10;
+
+/// Area of the walls [nm^2; extruded: nm] per nm of their height.
+double wall_perimeter(const Case& the_case) {
+    double sum = 0;
     for (const geometry::Opening& opening : the_case.mask.openings)
-        area += the_case.domain.extruded()
-                    ? 2 * depth
-                    : 3.14159265358979 * 0.5 * (opening.width_x + opening.width_y) * depth;
-    return area;
+        sum += the_case.domain.extruded() ? 2 : 0.5 * pi * (opening.width_x + opening.width_y);
+    return sum;
+}
+
+/// Elements per area of a wall [1/nm^2; extruded: 1/nm]: one for each grid face that the contour
+/// crosses, which on a round wall is the mean of |cos| + |sin|.
+double elements_per_area(const geometry::Domain& domain) {
+    const double h = domain.spacing;
+    return domain.extruded() ? 1 / h : 4 / (pi * h * h);
+}
+
+double seconds_of(const Timings& t) {
+    return t.extract + t.cast + t.fluxes + t.advance + t.carry;
 }
 
 } // namespace
 
 Estimate estimate_run(const Case& the_case) {
-    using Clock = std::chrono::steady_clock;
     Estimate estimate;
+    const double before = static_cast<double>(peak_memory_bytes());
     Simulation simulation(the_case);
-    const Expectation expected = expect(the_case);
-    const double h = the_case.domain.spacing;
-    // One short advance with all that belongs to it: two solves, the move, the new surface.
+    const Expectation expected = expect(the_case, simulation.open_field());
+    estimate.warnings = charging_warnings(the_case, expected);
+    // The tables that are made once are made here; then one short advance with all that belongs to
+    // it but for the solve on the surface where it starts, which costs as much as the one inside.
+    simulation.arrivals();
+    const Timings start = simulation.timings();
     const double top_rate = expected.total_s > 0 ? expected.depth_nm / expected.total_s : 0;
-    const auto start = Clock::now();
+    const double h = the_case.domain.spacing;
     simulation.step(top_rate > 0 ? 0.1 * h / top_rate : expected.total_s);
-    const double seconds = std::chrono::duration<double>(Clock::now() - start).count();
-    const double cell = the_case.domain.extruded() ? h : h * h;
-    const std::size_t now = simulation.surface().size();
-    estimate.elements =
-        now + static_cast<std::size_t>(1.3 * wall_area(the_case, expected.depth_nm) / cell);
-    const double growth = now == 0 ? 1.0 : static_cast<double>(estimate.elements) / now;
+    const Timings& end = simulation.timings();
+    const double seconds =
+        seconds_of(end) - seconds_of(start) + end.fluxes - start.fluxes + end.cast - start.cast;
+
+    const double now = static_cast<double>(simulation.surface().size());
+    const double walls = expected.depth_nm - expected.mask_loss_nm;
+    estimate.elements = static_cast<std::size_t>(std::max(
+        0.5 * now, now + walls * wall_perimeter(the_case) * elements_per_area(the_case.domain)));
+    const double most = std::max(now, static_cast<double>(estimate.elements));
+    const double growth = estimate.elements / std::max(1.0, now);
     estimate.voxels = static_cast<std::size_t>(growth * simulation.front().band().size());
-    estimate.memory_mb = growth * peak_memory_bytes() / 1e6;
-    estimate.refreshes = static_cast<int>(std::ceil(2 * expected.depth_nm / h)) + 1;
+    estimate.memory_mb =
+        (before + (peak_memory_bytes() - before) * most / std::max(1.0, now)) / 1e6 + pictures_mb;
+    const double fastest =
+        std::max(top_rate, simulation.last_dt_s() > 0
+                               ? simulation.last_move_cells() * h / simulation.last_dt_s()
+                               : 0.0);
+    const double advances =
+        std::ceil(fastest * expected.total_s / (the_case.refresh_move * h)) + frames_a_run;
+    estimate.refreshes = static_cast<int>(2 * advances);
     estimate.process_s = expected.total_s;
     // The surface grows from its present to its final size while the run goes on.
-    estimate.wall_seconds = estimate.refreshes * seconds * 0.5 * (1 + growth);
+    estimate.wall_seconds = advances * seconds * 0.5 * (1 + growth);
     return estimate;
 }
 
 std::string estimate_text(const Case& the_case, const Estimate& e) {
     std::ostringstream text;
-    text << "grid: " << the_case.domain.cells_x;
+    text << "# grid: " << the_case.domain.cells_x;
     if (!the_case.domain.extruded()) text << " x " << the_case.domain.cells_y;
     text << " cells of " << the_case.domain.spacing << " nm across, about " << e.voxels
          << " voxels and " << e.elements << " surface elements at the end\n"
-         << "rays: " << the_case.rays_per_element << " per element and refresh, "
+         << "# rays: " << the_case.rays_per_element << " per element and refresh, "
          << the_case.ions_per_species << " reflected ions per species\n"
-         << "memory: about " << std::ceil(e.memory_mb) << " MB at most\n"
-         << "time: about " << duration_text(e.process_s) << " of process, " << e.refreshes
+         << "# memory: about " << std::ceil(e.memory_mb) << " MB at most\n"
+         << "# time: about " << duration_text(e.process_s) << " of process, " << e.refreshes
          << " refreshes, about " << duration_text(e.wall_seconds) << " on this machine\n";
+    for (const auto* list : {&the_case.warnings, &e.warnings})
+        for (const std::string& warning : *list)
+            text << "# warning: " << warning << '\n';
     return text.str();
 }
 
 nlohmann::json estimate_json(const Case& the_case, const Estimate& e) {
     std::vector<std::string> warnings = the_case.warnings;
-    for (const std::string& warning : charging_warnings(the_case))
-        warnings.push_back(warning);
+    warnings.insert(warnings.end(), e.warnings.begin(), e.warnings.end());
     return {{"title", the_case.title},
             {"spacing_nm", the_case.domain.spacing},
             {"voxels", e.voxels},
@@ -79,7 +107,7 @@ nlohmann::json estimate_json(const Case& the_case, const Estimate& e) {
             {"refreshes", e.refreshes},
             {"process_time_s", e.process_s},
             {"wall_time_s", e.wall_seconds},
-            {"warnings", the_case.warnings}};
+            {"warnings", warnings}};
 }
 
 } // namespace rille::engine

@@ -13,13 +13,17 @@ struct Estimate {
     std::size_t elements = 0; ///< surface elements at the expected end
     std::size_t voxels = 0;   ///< of the narrow band at the expected end
     double memory_mb = 0;
-    int refreshes = 0;       ///< of the arrivals, two solves each
-    double process_s = 0;    ///< simulated time
-    double wall_seconds = 0; ///< one refresh of the initial front, scaled
+    int refreshes = 0;                 ///< of the arrivals, two for each advance
+    double process_s = 0;              ///< simulated time
+    double wall_seconds = 0;           ///< one refresh of the initial front, scaled
+    std::vector<std::string> warnings; ///< of charging
 };
 
-/// Builds the initial front, does one short advance and scales its cost to the expected end.
+/// Builds the initial front, does one short advance and scales its cost to the expected end. The
+/// depth is the open field's, so what only happens inside a feature (a slower floor, a microtrench)
+/// is not in it.
 Estimate estimate_run(const Case&);
+/// Lines of a YAML comment, so that they can stand below the case and the whole is still a case.
 std::string estimate_text(const Case&, const Estimate&);
 nlohmann::json estimate_json(const Case&, const Estimate&);
 

@@ -4,12 +4,14 @@
 #include "engine/output_folder.hpp"
 #include "engine/problems.hpp"
 #include "engine/version.hpp"
+#include "engine/words.hpp"
 #include "geometry/check.hpp"
 
 #include <CLI/CLI.hpp>
 #include <csignal>
 #include <iostream>
 #include <tbb/global_control.h>
+#include <unistd.h>
 
 namespace {
 
@@ -17,28 +19,73 @@ using namespace rille;
 
 std::atomic<bool> stop{false};
 volatile std::sig_atomic_t signal_number = 0;
+volatile std::sig_atomic_t quiet = 0;
 
 void on_signal(int number) {
     if (stop) std::_Exit(128 + number); // asked twice: the files written so far are whole
     signal_number = number;
     stop = true;
+    constexpr char stopping[] = "\nstopping after this refresh; once more to stop at once\n";
+    if (!quiet && write(STDERR_FILENO, stopping, sizeof stopping - 1) < 0) quiet = 1;
 }
 
 void add_common(CLI::App& command, engine::CommonOptions& options) {
-    command.add_option("--set", options.overrides, "Replace a value of the case: key.path=value");
+    command
+        .add_option("--set", options.overrides,
+                    "Replace a value of the case, for example mask.openings.trench.cd='70 nm'; "
+                    "may be given several times")
+        ->type_name("KEY=VALUE")
+        ->allow_extra_args(false);
     command.add_option("--threads", options.threads, "Threads to use (default: all cores)")
-        ->check(CLI::Range(1, 4096));
+        ->check(CLI::Range(1, 4096).description(""))
+        ->type_name("N");
     command.add_flag("--json", options.json, "Print the result as JSON");
 }
 
 void add_run_options(CLI::App& command, engine::CommonOptions& options) {
-    command.add_option("--seed", options.seed, "Seed of everything random");
+    command
+        .add_option("--seed", options.seed, "Seed of everything random, instead of sampling.seed")
+        ->check(CLI::Validator(
+            [](const std::string& text) {
+                const bool digits = text.find_first_not_of("0123456789") == std::string::npos;
+                return digits ? std::string() : text + " is not a whole number from 0";
+            },
+            ""))
+        ->type_name("N");
     command.add_flag("--quiet", options.quiet, "Print nothing but errors");
+}
+
+/// What is wrong with the words of the command line where a command or an option is unknown; else
+/// empty.
+std::string slip_in(const CLI::App& app, int argc, char** argv) {
+    std::vector<std::string> commands;
+    const std::string first = argc > 1 ? argv[1] : "-";
+    const CLI::App* command = nullptr;
+    for (const CLI::App* one : app.get_subcommands({})) {
+        commands.push_back(one->get_name());
+        if (one->get_name() == first) command = one;
+    }
+    if (first[0] != '-' && std::find(commands.begin(), commands.end(), first) == commands.end())
+        return "unknown command " + engine::quoted(first) +
+               "; there are: " + engine::listed(commands) + engine::did_you_mean(first, commands);
+    std::vector<std::string> names;
+    for (const CLI::Option* option : (command ? command : &app)->get_options())
+        if (option->nonpositional()) names.push_back(option->get_name());
+    for (const std::string& word : app.remaining(true))
+        if (word[0] == '-' && word.size() > 1)
+            return "unknown option " + engine::quoted(word) +
+                   (command ? " of rille " + first : std::string()) +
+                   engine::did_you_mean(word, names);
+    return "";
 }
 
 int dispatch(int argc, char** argv) {
     CLI::App app("rille: the profile that a plasma etch leaves in a film stack");
-    app.footer(engine::caution);
+    app.footer(
+        std::string("Exit status: 0 done, 1 internal error, 2 usage, 3 bad input, 4 numerics, 5 "
+                    "file, 130 or 143 interrupted\nwith valid output. A film that did not clear is "
+                    "a result (0), unless its step says must_end.\n\n") +
+        engine::caution);
     app.set_version_flag("--version", "rille " + engine::version() + " (" + engine::revision() +
                                           ", " + engine::build_info() + ")");
     app.require_subcommand(1);
@@ -47,24 +94,26 @@ int dispatch(int argc, char** argv) {
         options.command_line += (i ? " " : "") + std::string(argv[i]);
     std::string path, folder = "out";
     bool force = false;
-    auto* run = app.add_subcommand("run", "Etch a case and write the result into a folder");
+    auto* run = app.add_subcommand("run", "Etch a case and write the result into a folder; Ctrl-C "
+                                          "stops it and leaves what it has");
     auto* check = app.add_subcommand("check", "Read a case, show it in full and what it will cost");
     std::string sheath_folder;
     auto* sheath = app.add_subcommand(
         "sheath", "Show what reaches the wafer: energies, angles and fluxes of the ions");
     auto* measure = app.add_subcommand("measure", "Measure a finished run again");
     auto* schema = app.add_subcommand("schema", "Print the JSON Schema of a case file");
-    run->add_option("case", path, "Case file (YAML)")->required();
-    run->add_option("-o", folder, "Folder for the result")->capture_default_str();
+    run->add_option("case", path, "Case file (YAML)")->type_name("FILE")->required();
+    run->add_option("-o", folder, "Folder for the result")->type_name("DIR")->capture_default_str();
     run->add_flag("--force", force, "Replace what an earlier run left in the folder");
     run->footer(engine::caution);
-    check->add_option("case", path, "Case file (YAML)")->required();
-    sheath->add_option("case", path, "Case file (YAML)")->required();
-    sheath->add_option("-o", sheath_folder, "Folder for tables (CSV) and picture; default: none");
+    check->add_option("case", path, "Case file (YAML)")->type_name("FILE")->required();
+    sheath->add_option("case", path, "Case file (YAML)")->type_name("FILE")->required();
+    sheath->add_option("-o", sheath_folder, "Folder for tables (CSV) and picture; default: none")
+        ->type_name("DIR");
     sheath->add_flag("--force", force, "Replace what an earlier command left in the folder");
     sheath->footer("Voltages are those of a model, not permitted settings of a tool.\n" +
                    std::string(engine::caution));
-    measure->add_option("folder", folder, "Folder of a run")->required();
+    measure->add_option("folder", folder, "Folder of a run")->type_name("DIR")->required();
     for (CLI::App* command : {run, check, sheath, measure})
         add_common(*command, options);
     add_run_options(*run, options);
@@ -72,7 +121,10 @@ int dispatch(int argc, char** argv) {
     try {
         app.parse(argc, argv);
     } catch (const CLI::ParseError& error) {
-        return app.exit(error) == 0 ? 0 : 2;
+        const std::string slip = error.get_exit_code() == 0 ? "" : slip_in(app, argc, argv);
+        if (slip.empty()) return app.exit(error) == 0 ? 0 : 2;
+        std::cerr << slip << "\nRun with --help for more information.\n";
+        return 2;
     }
     std::optional<tbb::global_control> limit;
     if (options.threads > 0)
@@ -81,6 +133,7 @@ int dispatch(int argc, char** argv) {
     if (*sheath) return engine::sheath_command(path, sheath_folder, force, options);
     if (*measure) return engine::measure_command(folder, options);
     if (*schema) return engine::schema_command();
+    quiet = options.quiet;
     std::signal(SIGINT, on_signal);
     std::signal(SIGTERM, on_signal);
     const int status = engine::run_command(path, folder, force, options, stop);

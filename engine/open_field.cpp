@@ -51,9 +51,12 @@ const fluxes::SurfaceResponse& OpenField::flat(int material, const std::string& 
     const fluxes::MaterialsInReach reach{{0, 1}, {material}};
     fluxes::Sampling sampling;
     sampling.ions_per_species = 0; // nothing to reflect onto
+    fluxes::SurfaceStep before;    // another material under the same ions
+    before.ion_tables = tables_[plasma];
     const auto solved =
         fluxes::solve_surface(domain, surface, caster, reach, case_.mechanism, case_.reflection,
-                              sources_of(case_, case_.plasmas.at(plasma)), sampling, nullptr);
+                              sources_of(case_, case_.plasmas.at(plasma)), sampling, &before);
+    tables_[plasma] = solved.ion_tables;
     return known_.emplace(std::pair(plasma, material), solved.response[0]).first->second;
 }
 

@@ -5,6 +5,7 @@
 #include "fluxes/surface_step.hpp"
 
 #include <map>
+#include <memory>
 #include <string>
 #include <utility>
 #include <vector>
@@ -33,6 +34,7 @@ private:
     double grown_ = 0; ///< [nm] of film on top
     int grown_material_ = -1;
     mutable std::map<std::pair<std::string, int>, fluxes::SurfaceResponse> known_;
+    mutable std::map<std::string, std::shared_ptr<const fluxes::IonTables>> tables_; ///< by plasma
 };
 
 } // namespace rille::engine

@@ -49,16 +49,23 @@ void make_folder(const std::string& path) {
         throw OutputError(path, "cannot make the folder", "something else has this name");
 }
 
+/// A frame, or what a run that was killed has left of one.
+bool is_frame(const fs::path& path) {
+    const fs::path name = path.extension() == ".part" ? path.stem() : path.filename();
+    return name.extension() == ".vtp";
+}
+
 void remove_earlier_run(const std::string& path) {
     std::error_code error;
     for (const char* name : output_names::all) {
         fs::remove(fs::path(path) / name, error);
         if (error) throw OutputError(path + "/" + name, "cannot remove the file", error.message());
+        remove_quietly(temporary(fs::path(path) / name)); // of a run that was killed
     }
     const fs::path frames = fs::path(path) / output_names::frames;
     if (!fs::is_directory(frames, error)) return;
     for (const auto& entry : fs::directory_iterator(frames, error))
-        if (entry.path().extension() == ".vtp") fs::remove(entry.path(), error);
+        if (is_frame(entry.path())) fs::remove(entry.path(), error);
     if (error) throw OutputError(frames.string(), "cannot empty the folder", error.message());
 }
 

@@ -18,6 +18,7 @@ inline constexpr const char* sheath_png = "sheath.png";
 inline constexpr const char* sheath_csv = "sheath.csv";
 inline constexpr const char* sheath_tables = "distributions"; ///< folder
 inline constexpr const char* frames = "frames";
+inline constexpr const char* inputs = "inputs"; ///< copies of the files that the case names
 inline constexpr const char* all[] = {resolved_case, record,     history,    profile,
                                       metrics,       series,     level_set,  picture_svg,
                                       picture_png,   sheath_svg, sheath_png, sheath_csv};

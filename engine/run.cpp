@@ -3,6 +3,7 @@
 
 #include "engine/metrics.hpp"
 #include "engine/number_text.hpp"
+#include "geometry/band.hpp"
 #include "geometry/check.hpp"
 
 #include <algorithm>
@@ -53,10 +54,13 @@ HistoryRow history_row(const Case& the_case, Simulation& simulation, const std::
     return row;
 }
 
-void note_health(const Case& the_case, const Simulation& simulation, RunRecord& record) {
+void note_health(const Case& the_case, const Expectation& expected, const Simulation& simulation,
+                 RunRecord& record) {
     const Health& health = simulation.health();
     record.steps = simulation.outcomes();
     record.simulated_s = simulation.time_s();
+    record.elements = simulation.surface().size();
+    record.voxels = simulation.front().band().size();
     record.refreshes = health.refreshes;
     record.rays = health.rays;
     record.lost_rays = health.lost_rays;
@@ -74,7 +78,7 @@ void note_health(const Case& the_case, const Simulation& simulation, RunRecord& 
                                   " near x = " + rounded(event.part.centre.x) +
                                   " nm, z = " + rounded(event.part.centre.z) +
                                   " nm, first seen at " + rounded(event.time_s) + " s");
-    for (const std::string& warning : charging_warnings(the_case))
+    for (const std::string& warning : charging_warnings(the_case, expected))
         record.warnings.push_back(warning);
 }
 
@@ -85,8 +89,12 @@ bool is_insulator(const Case& the_case, int material) {
 } // namespace
 
 Expectation expect(const Case& the_case) {
-    OpenField field(the_case);
+    return expect(the_case, OpenField(the_case));
+}
+
+Expectation expect(const Case& the_case, OpenField field) {
     const double top = field.height();
+    const int mask = the_case.mask.thickness > 0 ? the_case.films.front().material : -1;
     Expectation expected;
     std::map<std::string, double> duration;
     for (const RecipeStep& step : the_case.steps) {
@@ -100,11 +108,14 @@ Expectation expect(const Case& the_case) {
             time = std::min(step.no_longer_than_s, field.time_to(film->top, step.plasma));
         }
         field.advance(time, step.plasma);
+        if (mask >= 0)
+            expected.mask_loss_nm += std::max(0.0, field.flat(mask, step.plasma).rate) * time;
         duration[step.name] = time;
         expected.step_s.push_back(time);
         expected.total_s += time;
     }
     expected.depth_nm = top - field.height();
+    expected.mask_loss_nm = std::min(expected.mask_loss_nm, the_case.mask.thickness);
     return expected;
 }
 
@@ -116,14 +127,14 @@ double Expectation::share(std::size_t index, double of_step) const {
     return std::min(1.0, done / total_s);
 }
 
-std::vector<std::string> charging_warnings(const Case& the_case) {
+std::vector<std::string> charging_warnings(const Case& the_case, const Expectation& expected) {
     std::vector<std::string> warnings;
     double width = std::numeric_limits<double>::infinity();
     for (const auto& opening : the_case.mask.openings)
         width = std::min(width, opening.shape == geometry::Opening::Shape::trench
                                     ? opening.width_x
                                     : std::min(opening.width_x, opening.width_y));
-    const double depth = expect(the_case).depth_nm;
+    const double depth = expected.depth_nm;
     bool insulating_above_stop = false, conductor_to_insulator = false;
     for (std::size_t f = the_case.substrate_first; f < the_case.films.size(); ++f) {
         const geometry::Film& film = the_case.films[f];
@@ -150,9 +161,9 @@ std::vector<std::string> charging_warnings(const Case& the_case) {
 namespace {
 
 /// Steps to the end of the recipe, telling the observer; returns early when `stop` is set.
-void follow_recipe(const Case& the_case, Simulation& simulation, RunObserver& observer,
-                   const std::atomic<bool>& stop, std::vector<HistoryRow>& history) {
-    const Expectation expected = expect(the_case);
+void follow_recipe(const Case& the_case, const Expectation& expected, Simulation& simulation,
+                   RunObserver& observer, const std::atomic<bool>& stop,
+                   std::vector<HistoryRow>& history) {
     const double interval =
         the_case.frame_interval_s > 0 ? the_case.frame_interval_s : expected.total_s / 10;
     observer.framed(snapshot(the_case, simulation));
@@ -180,8 +191,9 @@ RunResult run_case(const Case& the_case, RunObserver& observer, const std::atomi
     RunResult result;
     RunRecord& record = result.record;
     Simulation simulation(the_case);
+    const Expectation expected = expect(the_case, simulation.open_field());
     try {
-        follow_recipe(the_case, simulation, observer, stop, result.history);
+        follow_recipe(the_case, expected, simulation, observer, stop, result.history);
         record.status = !simulation.finished()     ? "interrupted"
                         : simulation.all_reached() ? "done"
                                                    : "not cleared";
@@ -191,7 +203,7 @@ RunResult run_case(const Case& the_case, RunObserver& observer, const std::atomi
         result.error = std::current_exception();
     }
     result.last = snapshot(the_case, simulation, record.failure.empty());
-    note_health(the_case, simulation, record);
+    note_health(the_case, expected, simulation, record);
     record.wall_seconds = std::chrono::duration<double>(Clock::now() - started).count();
     const auto front = std::make_shared<geometry::Front>(simulation.front());
     result.write_level_set = [front](const std::string& path) { front->write_vdb(path); };

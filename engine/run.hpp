@@ -31,14 +31,17 @@ RunResult run_case(const Case&, RunObserver&, const std::atomic<bool>& stop);
 struct Expectation {
     std::vector<double> step_s; ///< length of each recipe step
     double total_s = 0;
-    double depth_nm = 0; ///< of the open field at the end
+    double depth_nm = 0;     ///< of the open field at the end
+    double mask_loss_nm = 0; ///< flat loss of the mask at the end, at most its thickness
     /// Share of the whole that is done when `of_step` of step `index` is.
     double share(std::size_t index, double of_step) const;
 };
 Expectation expect(const Case&);
+/// The same from a field that stands at its start; what it has solved before is not solved again.
+Expectation expect(const Case&, OpenField);
 
 /// Charging is not modelled: says so where it matters, an insulator above aspect ratio 10 or a
 /// conductor etched down to an insulator (common practice, no source).
-std::vector<std::string> charging_warnings(const Case&);
+std::vector<std::string> charging_warnings(const Case&, const Expectation&);
 
 } // namespace rille::engine

@@ -22,6 +22,8 @@ std::string json_text(const nlohmann::json& json) {
 } // namespace
 
 RunOutput::RunOutput(OutputFolder& folder, const Case& c) : folder_(folder), case_(c) {
+    for (const InputFile& file : c.inputs)
+        folder_.write(file.name, file.content);
     folder_.write(output_names::resolved_case, c.resolved_yaml);
 }
 

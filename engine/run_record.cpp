@@ -46,6 +46,15 @@ json unused_json(const Case& c) {
     return unused;
 }
 
+json inputs_json(const Case& c) {
+    json list = json::array();
+    for (const InputFile& file : c.inputs)
+        list.push_back({{"file", file.name},
+                        {"read_from", file.path},
+                        {"sha256", content_hash(file.content)}});
+    return list;
+}
+
 json machine_json(const RunRecord& record) {
     return {{"threads", record.threads},
             {"cpu_features", cpu_features()},
@@ -78,6 +87,7 @@ json record_json(const Case& c, const RunRecord& record, const std::vector<std::
             {"command", record.command},
             {"case_file", c.file},
             {"case_sha256", content_hash(c.resolved_yaml)},
+            {"inputs", inputs_json(c)},
             {"chemistry", c.chemistry},
             {"started", record.started},
             {"seed", c.seed},
@@ -95,6 +105,8 @@ json record_json(const Case& c, const RunRecord& record, const std::vector<std::
               {"spacing_asked_nm", c.spacing_asked},
               {"rays_per_element", c.rays_per_element},
               {"ions_per_species", c.ions_per_species},
+              {"surface_elements", record.elements},
+              {"voxels", record.voxels},
               {"refreshes", record.refreshes},
               {"rays", record.rays},
               {"lost_rays", record.lost_rays},

@@ -36,7 +36,8 @@ struct RunRecord {
     std::vector<StepOutcome> steps;
     std::vector<std::string> warnings; ///< raised during the run; the case's own are added
     double simulated_s = 0;
-    int refreshes = 0; ///< of the arrivals
+    int refreshes = 0;                    ///< of the arrivals
+    std::size_t elements = 0, voxels = 0; ///< of the front at the end
     std::uint64_t rays = 0;
     std::uint64_t lost_rays = 0;
     double redistance_shift = 0; ///< [cells] largest accumulated

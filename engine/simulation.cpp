@@ -21,9 +21,8 @@ namespace {
 using geometry::Surface;
 using geometry::Vec3;
 
-constexpr double lost_ray_share = 1e-5; // a run with more lost rays than this is not trusted
-constexpr double touching = 1e-6;       // [cells] a front this near to a film has reached it
-constexpr double no_film_nm = 1e-9;     // thinner grown film counts as none
+constexpr double touching = 1e-6;   // [cells] a front this near to a film has reached it
+constexpr double no_film_nm = 1e-9; // thinner grown film counts as none
 
 /// Adds the wall time of its scope to a counter.
 class Stopwatch {
@@ -62,20 +61,6 @@ geometry::GrownFilms initial_films(const Case& c, std::size_t elements) {
     return films;
 }
 
-/// Highest point [nm] of the floor below an opening: of every element that faces up within the
-/// inner 80 % of the opening as drawn and lies below the mask.
-double highest_floor(const Surface& surface, const geometry::FeatureSite& site) {
-    double z = -std::numeric_limits<double>::infinity();
-    for (std::size_t e = 0; e < surface.size(); ++e) {
-        const Vec3& c = surface.centre[e];
-        const double x = (c.x - site.centre_x) / (0.4 * site.width_x);
-        const double y = site.round ? (c.y - site.centre_y) / (0.4 * site.width_y) : 0.0;
-        const bool inside = site.round ? x * x + y * y < 1 : std::fabs(x) < 1;
-        if (inside && surface.chain[e] == 0 && surface.normal[e].z > 0.3) z = std::max(z, c.z);
-    }
-    return z;
-}
-
 double highest(const Surface& surface) {
     double z = -std::numeric_limits<double>::infinity();
     for (const Vec3& v : surface.vertices)
@@ -84,6 +69,13 @@ double highest(const Surface& surface) {
 }
 
 } // namespace
+
+void check_lost_rays(const Health& health) {
+    if (health.lost_rays <= lost_rays_allowed || health.lost_rays <= lost_ray_share * health.rays)
+        return;
+    throw NumericsError(std::to_string(health.lost_rays) + " of " + std::to_string(health.rays) +
+                        " rays ended neither on the surface nor in the open");
+}
 
 Simulation::Simulation(const Case& the_case)
     : case_(the_case), stack_(the_case.films), front_(initial_front(the_case)),
@@ -159,10 +151,7 @@ fluxes::SurfaceStep Simulation::solve(const Surface& surface, const geometry::Gr
     health_.largest_sticking_residual =
         std::max(health_.largest_sticking_residual, solved.residual);
     ++health_.refreshes;
-    if (health_.lost_rays > 100 && health_.lost_rays > lost_ray_share * health_.rays)
-        throw NumericsError(std::to_string(health_.lost_rays) + " of " +
-                            std::to_string(health_.rays) +
-                            " rays ended neither on the surface nor in the open");
+    check_lost_rays(health_);
     return solved;
 }
 

@@ -289,8 +289,12 @@ YamlNode read_yaml_file(const std::string& path, Problems& problems, const std::
     std::error_code ignored;
     std::ifstream file(path, std::ios::binary);
     if (!file || std::filesystem::is_directory(path, ignored)) {
+        const bool is_folder = std::filesystem::is_directory(path, ignored);
         const bool exists = std::filesystem::exists(path, ignored);
-        problems.add({name, 0, 0}, "", exists ? "cannot be read" : "no such file");
+        problems.add({name, 0, 0}, "",
+                     is_folder ? "is a folder; a file is due"
+                     : exists  ? "cannot be read"
+                               : "no such file");
         return {};
     }
     std::ostringstream text;

@@ -35,6 +35,8 @@ with open(out + "/profile.png", "rb") as png:
 times = [float(row[0]) for row in list(csv.reader(open(out + "/history.csv")))[1:]]
 assert times == sorted(times) and times[-1] > 40
 P
+"$rille" check "$root/examples/poly-trench/case.yaml" --set 'spacing=5 nm' --json >"$work/estimate.json"
+python3 "$root/tests/support/compare_estimate.py" "$work/estimate.json" "$work/out/run.json"
 # Measuring again gives the same numbers; another height can be asked for.
 "$rille" measure "$work/out" --json >"$work/again.json"
 cmp "$work/again.json" "$work/out/metrics.json"

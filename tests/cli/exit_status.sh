@@ -27,6 +27,11 @@ expect 0 '^rille [0-9]' "$rille" --version
 expect 0 '"\$schema"' "$rille" schema
 expect 2 'subcommand' "$rille"
 expect 2 'nonsense' "$rille" run --nonsense "$case"
+expect 2 'unknown option "--thread" of rille run; did you mean "--threads"' "$rille" run "$case" --thread 2
+expect 2 'unknown command "rn"; .*did you mean "run"' "$rille" rn "$case"
+expect 2 'seed: -1' "$rille" run "$case" --seed -1
+expect 2 'not expected' "$rille" check --set 'spacing=4 nm' 'mask.thickness=90 nm' "$case"
+expect 3 'is a folder' "$rille" check "$root/examples/poly-trench"
 expect 2 'threads' "$rille" run "$case" --threads 0
 expect 3 'missing.yaml' "$rille" check "$work/missing.yaml"
 expect 3 'case.yaml:1:1' bash -c "printf 'nothing: 1\n' >'$work/case.yaml'; '$rille' check '$work/case.yaml'"
@@ -37,4 +42,14 @@ expect 5 "$work/file" timeout 5 "$rille" run "$case" -o "$work/file/out"
 mkdir "$work/full" && echo precious >"$work/full/notes.txt"
 expect 5 'full' timeout 5 "$rille" run "$case" -o "$work/full"
 [ "$(cat "$work/full/notes.txt")" = precious ] || { echo "FAILED: a file was touched"; failed=1; }
+# What `check` prints is a case, which says the same again (but for how long it takes).
+"$rille" check "$case" >"$work/shown.yaml"
+"$rille" check "$work/shown.yaml" | grep -v '^# time' >"$work/again.yaml"
+grep -q '^# memory' "$work/shown.yaml" || { echo "FAILED: no estimate"; failed=1; }
+grep -v '^# time' "$work/shown.yaml" | cmp - "$work/again.yaml" || { echo "FAILED: check of a checked case"; failed=1; }
+# Where root does not write past permissions: a folder that is not ours.
+mkdir -m 555 "$work/locked"
+if [ "$(id -u)" != 0 ]; then
+    expect 5 'locked' timeout 5 "$rille" run "$case" -o "$work/locked/out"
+fi
 exit $failed

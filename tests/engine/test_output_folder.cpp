@@ -6,6 +6,7 @@
 #include <csignal>
 #include <fstream>
 #include <sys/resource.h>
+#include <sys/wait.h>
 
 using namespace rille;
 using engine::OutputError;
@@ -109,4 +110,30 @@ TEST_CASE("output folder: a file is written whole or not at all") {
     CHECK(names_in(scratch / "run") == std::vector<std::string>{"history.csv"});
     folder.write("history.csv", "after"); // and it can go on
     CHECK(engine::read_file(scratch / "run/history.csv") == "after");
+}
+
+TEST_CASE("output folder: a kill in the middle of a write leaves nothing under the final name") {
+    const ScratchFolder scratch;
+    OutputFolder folder(scratch / "run", OutputFolder::Existing::refuse);
+    folder.write("history.csv", "before");
+    for (const char* name : {"history.csv", "frames/frame_0000.vtp"}) {
+        const pid_t child = fork();
+        REQUIRE(child >= 0);
+        if (child == 0) {
+            folder.write_with(name, [](const std::string& path) {
+                std::ofstream(path) << "half" << std::flush;
+                raise(SIGKILL);
+            });
+            _exit(0);
+        }
+        int status = 0;
+        REQUIRE(waitpid(child, &status, 0) == child);
+        REQUIRE(WIFSIGNALED(status));
+    }
+    CHECK(engine::read_file(scratch / "run/history.csv") == "before");
+    CHECK(names_in(scratch / "run/frames") == std::vector<std::string>{".frame_0000.vtp.part"});
+    // What was left behind goes when the folder is taken over.
+    OutputFolder next(scratch / "run", OutputFolder::Existing::force);
+    CHECK(names_in(scratch / "run") == std::vector<std::string>{"frames"});
+    CHECK(names_in(scratch / "run/frames").empty());
 }

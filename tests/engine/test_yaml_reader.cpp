@@ -84,7 +84,8 @@ TEST_CASE("files that cannot be read are input errors") {
     Problems problems;
     read_yaml_file("/no/such/file.yaml", problems);
     read_yaml_file("/tmp", problems, "folder");
-    CHECK(report_of(problems) == "/no/such/file.yaml: no such file\nfolder: cannot be read");
+    CHECK(report_of(problems) ==
+          "/no/such/file.yaml: no such file\nfolder: is a folder; a file is due");
 }
 
 TEST_CASE("values: traps of plain text, truth, integers and words") {
