@@ -16,6 +16,8 @@ namespace rille::engine {
 void apply_overrides(YamlNode& root, const std::vector<std::string>& overrides, Problems&);
 /// Replaces `from: NAME` in plasmas by a copy of that plasma, with the keys given on top.
 void copy_plasmas(YamlNode& root, Problems&);
+/// Whether the value under this key of a plasma is the path of a file.
+bool names_a_file(const std::string& key);
 /// Makes the paths of files absolute: they are relative to the folder of the case.
 void absolute_files(YamlNode& root, const std::string& folder);
 

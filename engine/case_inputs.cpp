@@ -39,7 +39,7 @@ void keep(Entry& entry, std::vector<InputFile>& inputs) {
 
 void keep_files_below(Entry& entry, std::vector<InputFile>& inputs) {
     for (auto& [key, value] : entry.members) {
-        if (key == "file") keep(value, inputs);
+        if (names_a_file(key)) keep(value, inputs);
         keep_files_below(value, inputs);
     }
 }

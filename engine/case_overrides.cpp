@@ -168,7 +168,21 @@ void make_absolute(YamlNode* node, const std::string& folder) {
         node->text = std::filesystem::absolute(folder / path).lexically_normal().string();
 }
 
+void make_files_absolute(YamlNode& node, const std::string& folder) {
+    for (YamlNode::Member& member : node.members)
+        if (names_a_file(member.key))
+            make_absolute(&member.value, folder);
+        else
+            make_files_absolute(member.value, folder);
+}
+
 } // namespace
+
+bool names_a_file(const std::string& key) {
+    static const char* const keys[] = {"file", "retarding_curve", "waveform", "cross_sections",
+                                       "table"};
+    return std::find(std::begin(keys), std::end(keys), key) != std::end(keys);
+}
 
 void apply_overrides(YamlNode& root, const std::vector<std::string>& overrides,
                      Problems& problems) {
@@ -192,21 +206,7 @@ void absolute_files(YamlNode& root, const std::string& folder) {
     const std::string text = chemistry ? chemistry->text : "";
     if (text.find('/') != std::string::npos || text.find(".yaml") != std::string::npos)
         make_absolute(chemistry, folder);
-    YamlNode* plasmas = root.find("plasmas");
-    if (!plasmas) return;
-    for (YamlNode::Member& plasma : plasmas->members) {
-        for (const auto& [group, key] : {std::pair<const char*, const char*>{"rf_bias", "waveform"},
-                                         {"sheath", "cross_sections"},
-                                         {"state", "table"}})
-            if (YamlNode* node = plasma.value.find(group)) make_absolute(node->find(key), folder);
-        YamlNode* energies = plasma.value.find("ion_energies");
-        if (!energies) continue;
-        for (const char* key : {"file", "retarding_curve"}) {
-            make_absolute(energies->find(key), folder);
-            for (YamlNode::Member& ion : energies->members)
-                make_absolute(ion.value.find(key), folder);
-        }
-    }
+    if (YamlNode* plasmas = root.find("plasmas")) make_files_absolute(*plasmas, folder);
 }
 
 } // namespace rille::engine

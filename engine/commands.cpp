@@ -63,6 +63,7 @@ public:
         progress_.update(state);
     }
     void framed(const SurfaceState& state) override { output_.add_frame(state); }
+    void warned(const std::string& text) override { progress_.note("warning: " + text); }
 
 private:
     RunOutput& output_;

@@ -63,6 +63,12 @@ void Progress::update(const ProgressState& state) {
     out_ << "\r[" << bar << "] " << line(state, now - start_) << "\x1b[K" << std::flush;
 }
 
+void Progress::note(const std::string& text) {
+    if (style_ == Style::quiet) return;
+    out_ << (style_ == Style::bar ? "\r\x1b[K" : "") << text << '\n' << std::flush;
+    shown_ = -1e300; // the bar was wiped
+}
+
 void Progress::finish() {
     if (style_ == Style::quiet || !any_) return;
     shown_ = -1e300; // the last state is always shown

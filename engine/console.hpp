@@ -31,6 +31,8 @@ public:
     static Style style_for(int file_descriptor, bool quiet);
 
     void update(const ProgressState&);
+    /// A line of its own, at once; the bar goes on below it.
+    void note(const std::string&);
     /// Leaves the bar as it stands last, on a line of its own.
     void finish();
 

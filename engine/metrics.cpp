@@ -177,12 +177,12 @@ private:
             "beside the feature between 20 and 80 deg",
             geometry::mask_facet_angle(c_.domain, surface_, site_, 0.0), "no facet");
         add("selectivity", "1", "depth centre over the thickness that the mask has lost",
-            selectivity(left), "the mask has lost nothing, or there is no floor");
+            selectivity(left), "the mask has lost nothing or all, or there is no floor");
     }
 
     std::optional<Measured> selectivity(const std::optional<Measured>& left) const {
         const auto depth = depth_centre();
-        if (!depth || !left) return {};
+        if (!depth || !left || left->value <= 0) return {}; // the loss ends with the mask
         const double loss = c_.mask.thickness - left->value;
         if (loss < smallest_mask_loss_nm || depth->value <= 0) return {};
         // d(D / L) = dD / L - D dL / L^2, and dL is minus the change of what is left.

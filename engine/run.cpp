@@ -54,6 +54,58 @@ HistoryRow history_row(const Case& the_case, Simulation& simulation, const std::
     return row;
 }
 
+std::string isolated_warning(const IsolatedEvent& event) {
+    const bool closed = event.part.kind == geometry::IsolatedPart::Kind::closed_void;
+    return std::string(closed ? "a void has closed off" : "a piece of solid has come off") +
+           " near x = " + rounded(event.part.centre.x) +
+           " nm, z = " + rounded(event.part.centre.z) + " nm, first seen at " +
+           rounded(event.time_s) + " s";
+}
+
+/// Warnings that a refresh gives rise to, told when they arise and each once.
+class Watch {
+public:
+    Watch(const Case& the_case, RunObserver& observer, RunRecord& record)
+        : case_(the_case), observer_(observer), record_(record) {}
+
+    void look(const Simulation& simulation, const HistoryRow& row) {
+        const auto& isolated = simulation.isolated_parts();
+        for (; told_ < isolated.size(); ++told_)
+            warn(isolated_warning(isolated[told_]));
+        filled_.resize(row.features.size(), 0);
+        for (std::size_t f = 0; f < row.features.size(); ++f)
+            look_at(row.features[f], case_.mask.openings[f].name, filled_[f], row.time_s);
+    }
+
+private:
+    void look_at(const FeatureRow& feature, const std::string& name, char& filled, double time_s) {
+        if (case_.mask.thickness <= 0 || !feature.mask_left) return;
+        const double left = *feature.mask_left;
+        if (left <= 0 && !mask_gone_) {
+            mask_gone_ = true;
+            warn("the mask beside " + name + " is used up, first seen at " + rounded(time_s) +
+                 " s: from then on the film below it is etched too");
+        }
+        if (left > 0 && !filled && feature.depth_centre &&
+            left + *feature.depth_centre < case_.domain.spacing) {
+            filled = 1;
+            warn("opening " + name + " is filled to its top, first seen at " + rounded(time_s) +
+                 " s");
+        }
+    }
+    void warn(const std::string& text) {
+        record_.warnings.push_back(text);
+        observer_.warned(text);
+    }
+
+    const Case& case_;
+    RunObserver& observer_;
+    RunRecord& record_;
+    std::size_t told_ = 0;
+    bool mask_gone_ = false;
+    std::vector<char> filled_; ///< per opening
+};
+
 void note_health(const Case& the_case, const Expectation& expected, const Simulation& simulation,
                  RunRecord& record) {
     const Health& health = simulation.health();
@@ -71,13 +123,6 @@ void note_health(const Case& the_case, const Expectation& expected, const Simula
                       {"fluxes", t.fluxes},
                       {"advance", t.advance},
                       {"carry", t.carry}};
-    for (const IsolatedEvent& event : simulation.isolated_parts())
-        record.warnings.push_back((event.part.kind == geometry::IsolatedPart::Kind::closed_void
-                                       ? std::string("a void has closed off")
-                                       : std::string("a piece of solid has come off")) +
-                                  " near x = " + rounded(event.part.centre.x) +
-                                  " nm, z = " + rounded(event.part.centre.z) +
-                                  " nm, first seen at " + rounded(event.time_s) + " s");
     for (const std::string& warning : charging_warnings(the_case, expected))
         record.warnings.push_back(warning);
 }
@@ -162,8 +207,9 @@ namespace {
 
 /// Steps to the end of the recipe, telling the observer; returns early when `stop` is set.
 void follow_recipe(const Case& the_case, const Expectation& expected, Simulation& simulation,
-                   RunObserver& observer, const std::atomic<bool>& stop,
-                   std::vector<HistoryRow>& history) {
+                   RunObserver& observer, const std::atomic<bool>& stop, RunResult& result) {
+    std::vector<HistoryRow>& history = result.history;
+    Watch watch(the_case, observer, result.record);
     const double interval =
         the_case.frame_interval_s > 0 ? the_case.frame_interval_s : expected.total_s / 10;
     observer.framed(snapshot(the_case, simulation));
@@ -175,6 +221,7 @@ void follow_recipe(const Case& the_case, const Expectation& expected, Simulation
         simulation.step(next_frame);
         history.push_back(history_row(the_case, simulation, the_case.steps[index].name, start_s));
         const double of_step = simulation.step_index() > index ? 1.0 : simulation.step_progress();
+        watch.look(simulation, history.back());
         observer.progressed(simulation, history.back(), expected.share(index, of_step));
         if (simulation.time_s() >= next_frame * (1 - 1e-12)) {
             if (!simulation.finished()) observer.framed(snapshot(the_case, simulation));
@@ -193,7 +240,7 @@ RunResult run_case(const Case& the_case, RunObserver& observer, const std::atomi
     Simulation simulation(the_case);
     const Expectation expected = expect(the_case, simulation.open_field());
     try {
-        follow_recipe(the_case, expected, simulation, observer, stop, result.history);
+        follow_recipe(the_case, expected, simulation, observer, stop, result);
         record.status = !simulation.finished()     ? "interrupted"
                         : simulation.all_reached() ? "done"
                                                    : "not cleared";

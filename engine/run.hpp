@@ -19,6 +19,8 @@ public:
     virtual void progressed(const Simulation&, const HistoryRow&, double share) = 0;
     /// A frame: the front at a time of output, t = 0 and the end included.
     virtual void framed(const SurfaceState&) = 0;
+    /// A warning raised at this point of the run; it is kept in the record as well.
+    virtual void warned(const std::string&) {}
 };
 
 /// Runs a case from its first step to its last, or until `stop` is set (seen after each refresh).

@@ -20,6 +20,9 @@ TEST_CASE("console: a bar on a terminal, with time left") {
     const std::string before = out.str();
     progress.update({0.26, 12.6, "main", 51.3}); // too soon
     CHECK(out.str() == before);
+    progress.note("warning: a void has closed off"); // wipes the bar; the next update draws it anew
+    progress.update({0.26, 12.6, "main", 51.3});
+    CHECK(out.str().find("\r\x1b[Kwarning: a void has closed off\n\r[######") != std::string::npos);
     progress.finish();
     CHECK(out.str().find(" 26 %") != std::string::npos);
     CHECK(out.str().back() == '\n');
@@ -34,10 +37,13 @@ TEST_CASE("console: plain lines elsewhere, nothing when quiet") {
         plain.update({now / 25, now, "main", {}});
         silent.update({now / 25, now, "main", {}});
     }
+    plain.note("warning: said at once");
+    silent.note("warning: said at once");
     plain.finish();
     silent.finish();
+    CHECK(lines.str().find("\nwarning: said at once\n") != std::string::npos);
     const std::string text = lines.str();
-    CHECK(std::count(text.begin(), text.end(), '\n') == 4); // 0, 10, 20 s and the end
+    CHECK(std::count(text.begin(), text.end(), '\n') == 5); // 0, 10, 20 s, the warning, the end
     CHECK(text.find('\r') == std::string::npos);
     CHECK(quiet.str().empty());
     CHECK(duration_text(59.4) == "59 s");
