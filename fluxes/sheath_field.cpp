@@ -12,24 +12,30 @@ constexpr double pi = 3.14159265358979323846;
 constexpr double elementary_charge = 1.602176634e-19;
 constexpr double atomic_mass = 1.66053906660e-27;
 
-/// Steps per fall scale and per period; fourth-order steps of these lengths leave the mean energy
-/// within 1e-4 and the width within 1e-3.
-constexpr double steps_per_fall = 8, steps_per_period = 14;
+/// Fourth-order steps of these lengths leave mean energies within 1e-4 and widths within 1e-3; a
+/// voltage with flanks needs more of them than its steepness alone would say.
+constexpr double steps_per_fall = 8, steps_per_period = 8, steps_per_steep_period = 14;
 
 void require(bool condition, const char* message) {
     if (!condition) throw std::invalid_argument(message);
 }
 
-/// The frequency of a sine of the same steepness, in turns per period: what step lengths follow.
-double turns_per_period(const std::vector<double>& volt, double mean) {
-    double square = 0, slope = 0;
-    for (std::size_t i = 0; i < volt.size(); ++i) {
-        const double step = volt[(i + 1) % volt.size()] - volt[i];
-        square += (volt[i] - mean) * (volt[i] - mean);
-        slope += step * step;
+/// Steps that resolve a period. The slope over the swing is the frequency of a sine; the curvature
+/// over the slope is that of the fastest part of several, but knows no bounds on flanks.
+double steps_in_period(const std::vector<double>& volt, double mean) {
+    const std::size_t n = volt.size();
+    double swing = 0, slope = 0, curvature = 0;
+    for (std::size_t i = 0; i < n; ++i) {
+        const double here = volt[i], next = volt[(i + 1) % n], last = volt[(i + n - 1) % n];
+        swing += (here - mean) * (here - mean);
+        slope += (next - here) * (next - here);
+        curvature += (next - 2 * here + last) * (next - 2 * here + last);
     }
-    if (!(square > 0)) return 1;
-    return std::max(1.0, std::sqrt(slope / square) * double(volt.size()) / (2 * pi));
+    if (!(swing > 0 && slope > 0)) return steps_per_period;
+    const double turns = double(n) / (2 * pi);
+    return std::max(steps_per_period,
+                    turns * std::min(steps_per_steep_period * std::sqrt(slope / swing),
+                                     steps_per_period * std::sqrt(curvature / slope)));
 }
 
 } // namespace
@@ -69,8 +75,8 @@ SheathField::SheathField(const Sheath& sheath, double mass_amu) {
     period_ = sheath.voltage.period_s * full_speed / width_nm_;
     phase_per_time_ = 1 / period_;
     samples_ = static_cast<double>(volt.size());
-    const double per_period = steps_per_period * turns_per_period(volt, mean_v_);
-    longest_step_ = std::min(longest_step_, period_ / std::min(per_period, 4 * samples_));
+    const double per_period = std::min(steps_in_period(volt, mean_v_), 4 * samples_);
+    longest_step_ = std::min(longest_step_, period_ / per_period);
 }
 
 double SheathField::steady_gain_ev(double y) const {

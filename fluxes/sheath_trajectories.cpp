@@ -54,12 +54,14 @@ public:
             const bool reached = step.y >= 1;
             if (reached) h = reach_wafer(first, h, step);
             if (!encounters_.none()) {
-                const double depth = depth_of(step, h);
+                const double end_rate = rate_of_time(step.along);
+                const double depth = depth_of(step, end_rate, h);
                 if (depth > depth_left_) {
-                    collide(first, h * part_of(step, depth_left_ / depth));
+                    collide(first, h * part_before(depth_left_ / depth, end_rate));
                     continue;
                 }
                 depth_left_ -= depth;
+                rate_ = end_rate;
             }
             move(step, h);
             if (reached) return arrive();
@@ -82,7 +84,9 @@ private:
         start_y_ = y_;
         start_ev_ = along_ev + field_.entry_gain_ev(time_, y_);
         velocity_.along = std::sqrt(field_.speed_squared(start_ev_));
-        if (!encounters_.none()) depth_left_ -= y_ * encounters_.rate(energy_in_);
+        if (encounters_.none()) return;
+        depth_left_ -= y_ * encounters_.rate(energy_in_);
+        rate_ = rate_of_time(velocity_.along);
     }
 
     /// Long enough for the voltage and the fall, and never across a large change of the field.
@@ -114,18 +118,15 @@ private:
         return std::sqrt(squared) * encounters_.rate(field_.energy_ev(squared));
     }
     /// Expected collisions in a step, by Simpson's rule.
-    double depth_of(const Step& step, double h) const {
-        return h / 6 *
-               (rate_of_time(velocity_.along) + 4 * rate_of_time(step.middle) +
-                rate_of_time(step.along));
+    double depth_of(const Step& step, double end_rate, double h) const {
+        return h / 6 * (rate_ + 4 * rate_of_time(step.middle) + end_rate);
     }
     /// Part of the step at which `share` of its expected collisions have come; the rate of time is
     /// taken as straight between the ends.
-    double part_of(const Step& step, double share) const {
-        const double begin = rate_of_time(velocity_.along), end = rate_of_time(step.along);
-        const double wanted = std::max(share, 0.0) * (begin + end);
-        const double root = std::sqrt(begin * begin + (end - begin) * wanted);
-        return wanted > 0 ? std::min(1.0, wanted / (begin + root)) : 0.0;
+    double part_before(double share, double end_rate) const {
+        const double wanted = std::max(share, 0.0) * (rate_ + end_rate);
+        const double root = std::sqrt(rate_ * rate_ + (end_rate - rate_) * wanted);
+        return wanted > 0 ? std::min(1.0, wanted / (rate_ + root)) : 0.0;
     }
 
     void move(const Step& step, double h) {
@@ -162,6 +163,7 @@ private:
         velocity_ = outcome.ion;
         start_y_ = y_;
         start_ev_ = field_.energy_ev(velocity_.along * velocity_.along);
+        rate_ = rate_of_time(velocity_.along);
     }
 
     /// Neutrals feel no field; those that leave for the plasma are lost.
@@ -191,7 +193,9 @@ private:
     const Encounters& encounters_;
     Draws draws_;
     Tally& tally_;
-    double time_ = 0, y_ = 0, depth_left_ = 0;
+    double time_ = 0, y_ = 0;
+    double depth_left_ = 0; ///< expected collisions before the next one
+    double rate_ = 0;       ///< of collisions per time, here
     Encounters::Velocity velocity_;
     double start_y_ = 0, start_ev_ = 0; ///< where the normal motion last changed by a collision
     double energy_in_ = 0, energy_out_ = 0;
