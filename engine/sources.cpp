@@ -3,23 +3,23 @@
 
 #include "engine/sheath_model.hpp"
 
-#include <algorithm>
-
 namespace rille::engine {
 
 fluxes::Sources sources_of(const Case& the_case, const Plasma& plasma) {
     fluxes::Sources sources;
+    // A plasma that no case file made has tables or a steady sheath, which cost nothing.
+    const SheathResult arrivals =
+        plasma.arrivals ? *plasma.arrivals : solve_sheath(plasma, {}, the_case.seed);
     sources.wafer_temperature_k = the_case.wafer_temperature_k;
     for (const std::string& name : the_case.mechanism.ions) {
         fluxes::IonSource source;
         source.name = name;
-        if (plasma.arrivals)
-            for (const IonAtWafer& ion : plasma.arrivals->ions)
-                if (ion.name == name) {
-                    source.mass_amu = ion.mass_amu;
-                    source.flux = ion.flux + ion.fast_neutral_flux;
-                    source.distribution = ion.arriving.front();
-                }
+        for (const IonAtWafer& ion : arrivals.ions)
+            if (ion.name == name) {
+                source.mass_amu = ion.mass_amu;
+                source.flux = ion.flux + ion.fast_neutral_flux;
+                source.distribution = ion.arriving.front();
+            }
         sources.ions.push_back(source);
     }
     for (const std::string& name : the_case.mechanism.neutrals) {

@@ -49,7 +49,7 @@ TEST_CASE("run output: the folder is valid after every call, and complete at the
         CHECK(std::filesystem::exists(scratch / (std::string("run/") + name)));
         CHECK(record["files"].dump().find(name) != std::string::npos);
     }
-    CHECK(record["files"].size() == 9 + 3);
+    CHECK(record["files"].size() == 11 + 3);
     const auto json = nlohmann::json::parse(read_file(scratch / "run/metrics.json"));
     CHECK(json["metrics"].size() == metrics.metrics.size());
     for (const auto& metric : json["metrics"]) {
