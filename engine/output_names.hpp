@@ -19,8 +19,8 @@ inline constexpr const char* sheath_csv = "sheath.csv";
 inline constexpr const char* sheath_tables = "distributions"; ///< folder
 inline constexpr const char* frames = "frames";
 inline constexpr const char* inputs = "inputs"; ///< copies of the files that the case names
-inline constexpr const char* all[] = {resolved_case, record,     history,    profile,
-                                      metrics,       series,     level_set,  picture_svg,
-                                      picture_png,   sheath_svg, sheath_png, sheath_csv};
+inline constexpr const char* all[] = {resolved_case, record,     history,   profile,
+                                      metrics,       series,     level_set, picture_svg,
+                                      picture_png,   sheath_svg, sheath_png};
 
 } // namespace rille::engine::output_names
