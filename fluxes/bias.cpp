@@ -18,16 +18,29 @@ double mean_exp(double a, double b) {
     return std::fabs(d) < 1e-8 ? std::exp(0.5 * (a + b)) : std::exp(a) * std::expm1(d) / d;
 }
 
-/// Te ln <exp(V / Te)>.
-double log_mean_exp_v(const Waveform& voltage, double electron_ev) {
-    if (voltage.is_steady()) return voltage.volt.front();
-    const double top = voltage.highest();
+/// <exp(V / Te)> over a period, 1 wherever V > 0: electrons do not come faster than at random.
+double mean_boltzmann(const Waveform& voltage, double electron_ev) {
     double sum = 0;
     const std::size_t count = voltage.volt.size();
-    for (std::size_t i = 0; i < count; ++i)
-        sum += mean_exp((voltage.volt[i] - top) / electron_ev,
-                        (voltage.volt[(i + 1) % count] - top) / electron_ev);
-    return top + electron_ev * std::log(sum / double(count));
+    for (std::size_t i = 0; i < count; ++i) {
+        double a = voltage.volt[i] / electron_ev, b = voltage.volt[(i + 1) % count] / electron_ev;
+        if (a > b) std::swap(a, b);
+        if (a >= 0) {
+            sum += 1;
+        } else if (b <= 0) {
+            sum += mean_exp(a, b);
+        } else {
+            const double above = b / (b - a);
+            sum += above + (1 - above) * mean_exp(a, 0.0);
+        }
+    }
+    return sum / double(count);
+}
+
+/// Te ln <exp(V / Te)>.
+double log_mean_exp_v(const Waveform& voltage, double electron_ev) {
+    const double top = voltage.highest();
+    return top + electron_ev * std::log(mean_boltzmann(voltage.raised_by(-top), electron_ev));
 }
 
 void check(const BiasCircuit& circuit) {
@@ -83,10 +96,22 @@ WaferBias meet(const Waveform& shape, double wanted, const BiasCircuit& circuit,
 
 } // namespace
 
-double zero_current_mean_v(const Waveform& electrode, double electron_ev, double floating_drop_v) {
+double zero_current_level_v(const Waveform& electrode, double electron_ev, double floating_drop_v) {
     require(std::isfinite(electron_ev) && electron_ev > 0,
             "the electron temperature must be above zero");
-    return floating_drop_v + log_mean_exp_v(electrode.raised_by(-electrode.mean()), electron_ev);
+    require(std::isfinite(floating_drop_v) && floating_drop_v > 0,
+            "the floating drop must be above zero");
+    const Waveform swing = electrode.raised_by(-electrode.mean());
+    const double level = floating_drop_v + log_mean_exp_v(swing, electron_ev);
+    if (level >= swing.highest()) return level;
+    // The wafer would rise above the plasma: electrons saturate there.
+    const double wanted = std::exp(-floating_drop_v / electron_ev);
+    double low = swing.lowest(), high = swing.highest();
+    for (int i = 0; i < 60 && high - low > 1e-12 * high; ++i) {
+        const double middle = 0.5 * (low + high);
+        (mean_boltzmann(swing.raised_by(-middle), electron_ev) > wanted ? low : high) = middle;
+    }
+    return 0.5 * (low + high);
 }
 
 double mean_voltage_ratio(double wall_over_wafer_area, double exponent) {
@@ -119,9 +144,17 @@ WaferBias bias_from_voltage(const Waveform& applied, const BiasCircuit& circuit)
     const Waveform at_wafer = scaled(bias.applied, bias.wafer_share);
     // Against the grounded electrode the plasma swings the other way round.
     const Waveform at_wall = scaled(bias.applied, bias.wafer_share - 1);
-    bias.mean_sheath_v = zero_current_mean_v(at_wafer, te, drop);
-    bias.sheath = scaled(at_wafer, -1).raised_by(bias.mean_sheath_v);
-    bias.self_bias_v = zero_current_mean_v(at_wall, te, drop) - bias.mean_sheath_v;
+    // Where the electrode would stand above the plasma, the plasma goes with it.
+    const auto sheath = [&](const Waveform& electrode) {
+        const double level = zero_current_level_v(electrode, te, drop);
+        Waveform voltage = scaled(electrode, -1).raised_by(level);
+        for (double& v : voltage.volt)
+            v = std::max(v, 0.0);
+        return voltage;
+    };
+    bias.sheath = sheath(at_wafer);
+    bias.mean_sheath_v = bias.sheath.mean();
+    bias.self_bias_v = sheath(at_wall).mean() - bias.mean_sheath_v;
     bias.always_positive = bias.sheath.lowest() > 0;
     return bias;
 }

@@ -7,12 +7,14 @@
 
 namespace rille::fluxes {
 
-/// Voltage a lightly loaded capacitor keeps: the electrode draws no net charge over a period.
-/// Mean voltage across the sheath of an electrode that swings by `electrode` about its own mean:
-/// V0 = floating drop + Te ln <exp(V_el / Te)>, Maxwellian electrons, constant ion flux, electron
-/// transit short against the period (derived; for one sine the average is I0, Garscadden & Emeleus
-/// 1962, from memory). Exact for straight lines between the samples; does not overflow.
-double zero_current_mean_v(const Waveform& electrode, double electron_ev, double floating_drop_v);
+/// Voltage that a blocking capacitor settles at: the electrode draws no net charge over a period.
+/// Level V0 of the sheath voltage V0 - V_el(t) of an electrode that swings by V_el about its own
+/// mean: V0 = floating drop + Te ln <exp(V_el / Te)>, Maxwellian electrons, constant ion flux,
+/// electron transit short against the period (derived; for one sine the average is I0, Garscadden &
+/// Emeleus 1962, from memory). At large swings, where this would put the wafer above the plasma for
+/// a moment, electrons come at their random flux there (derived). Exact for straight lines between
+/// the samples; does not overflow.
+double zero_current_level_v(const Waveform& electrode, double electron_ev, double floating_drop_v);
 
 /// Mean voltage of the smaller (wafer) sheath over that of the larger one: (A_wall / A_wafer)^q.
 /// q = 4: Koenig & Maissel 1970; q = 2.5: collisional, Lieberman 1989; measured 1 to 2.5 (from
@@ -45,7 +47,8 @@ struct WaferBias {
     double mean_sheath_v = 0;
     double self_bias_v = 0; ///< dc voltage of the electrode against the grounded one, mostly < 0
     double wafer_share = 1; ///< of the swing that falls across the wafer's sheath
-    bool always_positive = true; ///< the plasma stays above the wafer at all phases
+    /// The plasma stays above the wafer at all phases; else the sheath was held at 0 V there.
+    bool always_positive = true;
 };
 
 /// The swing divides between the two sheaths as their mean voltages do; each sheath draws no net

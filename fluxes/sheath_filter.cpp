@@ -13,6 +13,7 @@ namespace {
 
 constexpr double pi = 3.14159265358979323846;
 constexpr int energy_bins = 200;
+constexpr double steepest = 200; ///< powers by which arrivals may be bunched
 
 void require(bool condition, const char* message) {
     if (!condition) throw std::invalid_argument(message);
@@ -25,43 +26,41 @@ std::vector<std::complex<double>> components_of(const Waveform& voltage) {
     return parts;
 }
 
-/// Where the middle of the spectrum of one sine lies above mean voltage and entry energy, over the
-/// square of the swing: trajectories in a Child sheath of fixed width, entry energies of 0.0005 to
-/// 0.05 of the mean voltage, swings of 0.5 and 1, rounded to their common course.
-double middle_gain(double omega_tau) {
-    struct Point {
-        double omega_tau, gain;
-    };
-    static constexpr Point table[] = {
-        {0, 0},     {0.3, 0.004}, {1, 0.022},  {2, 0.050},  {3, 0.074},  {4, 0.086},  {5, 0.080},
-        {6, 0.062}, {8, 0.030},   {10, 0.019}, {15, 0.009}, {20, 0.005}, {30, 0.002}, {60, 0.0}};
-    if (omega_tau >= std::end(table)[-1].omega_tau) return 0;
-    const Point* high = std::upper_bound(std::begin(table), std::end(table), omega_tau,
-                                         [](double x, const Point& p) { return x < p.omega_tau; });
-    const Point& low = high[-1];
-    return low.gain + (high->gain - low.gain) * (omega_tau - low.omega_tau) /
-                          (high->omega_tau - low.omega_tau);
+/// What trajectories in a Child sheath of fixed width show beyond the damping, for entry energies
+/// of 0.0005 to 0.05 of the mean voltage and swings of 0.5 and 1, rounded to their common course.
+struct Shape {
+    double omega_tau;
+    double middle; ///< of the spectrum above mean voltage and entry energy, over the swing squared
+    double width;  ///< over the damped one
+};
+Shape shape_at(double omega_tau) {
+    static constexpr Shape table[] = {{0, 0, 1},          {0.3, 0.004, 0.998}, {1, 0.022, 0.988},
+                                      {2, 0.050, 0.980},  {3, 0.074, 0.995},   {4, 0.086, 1.030},
+                                      {5, 0.080, 1.055},  {6, 0.062, 1.060},   {8, 0.030, 1.025},
+                                      {10, 0.019, 0.990}, {15, 0.009, 1},      {20, 0.005, 1},
+                                      {30, 0.002, 1},     {60, 0, 1}};
+    if (omega_tau >= std::end(table)[-1].omega_tau) return {omega_tau, 0, 1};
+    const Shape* high = std::upper_bound(std::begin(table), std::end(table), omega_tau,
+                                         [](double x, const Shape& p) { return x < p.omega_tau; });
+    const Shape& low = high[-1];
+    const double part = (omega_tau - low.omega_tau) / (high->omega_tau - low.omega_tau);
+    return {omega_tau, low.middle + part * (high->middle - low.middle),
+            low.width + part * (high->width - low.width)};
 }
 
-/// Sine parts that matter for the mean: swing over the mean voltage and frequency.
-struct Swing {
-    double ratio, omega_tau;
-};
-std::vector<Swing> strong_swings(const Waveform& voltage, double transit_s) {
-    constexpr std::size_t most = 12;
-    constexpr double slowest = 0.1, fastest = 120, weakest = 0.02;
-    const auto parts = components_of(voltage);
-    std::vector<Swing> swings;
-    for (std::size_t k = 1; k <= voltage.volt.size() / 2; ++k) {
-        const double omega_tau = 2 * pi * double(k) / voltage.period_s * transit_s;
-        const double ratio = 2 * std::abs(parts[k]) / parts[0].real();
-        if (omega_tau > slowest && omega_tau < fastest && ratio > weakest)
-            swings.push_back({ratio, omega_tau});
+/// Each Fourier component times a factor of omega tau, the mean kept.
+template <class Factor>
+Waveform filtered(const Waveform& voltage, double transit_s, const Factor& factor) {
+    auto parts = components_of(voltage);
+    const std::size_t count = parts.size();
+    for (std::size_t k = 1; k < count; ++k) {
+        const double cycles = double(std::min(k, count - k));
+        parts[k] *= factor(2 * pi * cycles / voltage.period_s * transit_s);
     }
-    std::stable_sort(swings.begin(), swings.end(),
-                     [](const Swing& a, const Swing& b) { return a.ratio > b.ratio; });
-    if (swings.size() > most) swings.resize(most);
-    return swings;
+    Waveform result = voltage;
+    Eigen::FFT<double> transform;
+    transform.inv(result.volt, parts);
+    return result;
 }
 
 /// Shift of the middle and gain of the mean, both over the mean voltage.
@@ -69,45 +68,46 @@ struct Gains {
     double middle = 0, mean = 0;
 };
 Gains gains_of(const Sheath& sheath, double transit_s) {
-    Gains gains;
+    constexpr double slowest = 0.03, fastest = 120, weakest = 0.02;
+    const auto parts = components_of(sheath.voltage);
     const double entry = entry_energy_ev(sheath) / sheath.voltage.mean();
-    for (const Swing& swing : strong_swings(sheath.voltage, transit_s)) {
-        const double held = std::min(swing.ratio, 1.0), more = swing.ratio / held;
-        gains.mean += more * more * (1 + entry) *
-                      mean_gain(swing.omega_tau, held, entry, sheath.profile_power, sheath.edge);
-        gains.middle += (1 + entry) * swing.ratio * swing.ratio * middle_gain(swing.omega_tau);
+    Gains gains;
+    double top = 0;
+    for (std::size_t k = 1; k <= sheath.voltage.volt.size() / 2; ++k) {
+        const double omega_tau = 2 * pi * double(k) / sheath.voltage.period_s * transit_s;
+        const double swing = 2 * std::abs(parts[k]) / parts[0].real();
+        if (omega_tau > fastest || swing < weakest) continue;
+        gains.middle += (1 + entry) * swing * swing * shape_at(omega_tau).middle;
+        top = omega_tau;
     }
+    if (top > slowest)
+        gains.mean = (1 + entry) * mean_gain(sheath.voltage, transit_s, top, entry,
+                                             sheath.profile_power, sheath.edge);
     return gains;
 }
 
-/// Shares of the bins when arrivals at high energy weigh more: 1 + b (E - mean), with b such that
-/// the mean becomes `wanted`. No arrival weighs less than nothing.
+/// Shares of the bins when arrivals at high energy weigh more, by a power of the energy such that
+/// the mean becomes `wanted`: few ions stay slow in a sheath that gives more later.
 std::vector<double> bunched(const std::vector<double>& share, const std::vector<double>& edges,
                             double wanted) {
-    double mean = 0, square = 0;
-    std::vector<double> middle;
-    for (std::size_t e = 0; e < share.size(); ++e) {
-        middle.push_back(0.5 * (edges[e] + edges[e + 1]));
-        mean += share[e] * middle[e];
-    }
+    std::vector<double> middle, result = share;
     for (std::size_t e = 0; e < share.size(); ++e)
-        square += share[e] * (middle[e] - mean) * (middle[e] - mean);
-    if (!(square > 0)) return share;
-    std::vector<double> result(share.size());
-    double slope = (wanted - mean) / square;
-    // A cut at zero weakens the shift; a few rounds bring it back.
-    for (int round = 0; round < 20; ++round) {
+        middle.push_back(0.5 * (edges[e] + edges[e + 1]));
+    const auto mean_with = [&](double power) {
         double sum = 0, moment = 0;
         for (std::size_t e = 0; e < share.size(); ++e) {
-            result[e] = share[e] * std::max(0.0, 1 + slope * (middle[e] - mean));
+            result[e] = share[e] * std::pow(middle[e] / wanted, power);
             sum += result[e];
             moment += result[e] * middle[e];
         }
         for (double& r : result)
             r /= sum;
-        const double missing = wanted - moment / sum;
-        if (std::fabs(missing) < 1e-6 * mean) break;
-        slope += missing / square;
+        return moment / sum;
+    };
+    double low = -steepest, high = steepest;
+    for (int i = 0; i < 40; ++i) {
+        const double power = 0.5 * (low + high);
+        (mean_with(power) < wanted ? low : high) = power;
     }
     return result;
 }
@@ -127,16 +127,8 @@ Waveform damped_voltage(const Waveform& sheath_voltage, double transit_s, double
     require(limit > 0, "the limit of the damping must be above zero");
     if (sheath_voltage.is_steady()) return sheath_voltage;
     require(sheath_voltage.period_s > 0, "a swinging voltage needs a period above zero");
-    auto parts = components_of(sheath_voltage);
-    const std::size_t count = parts.size();
-    for (std::size_t k = 1; k < count; ++k) {
-        const double cycles = double(std::min(k, count - k));
-        parts[k] *= damping(2 * pi * cycles / sheath_voltage.period_s * transit_s, limit);
-    }
-    Waveform damped = sheath_voltage;
-    Eigen::FFT<double> transform;
-    transform.inv(damped.volt, parts);
-    return damped;
+    return filtered(sheath_voltage, transit_s,
+                    [&](double omega_tau) { return damping(omega_tau, limit); });
 }
 
 Waveform relaxed_voltage(const Waveform& sheath_voltage, double relaxation_s) {
@@ -189,14 +181,23 @@ std::vector<double> time_shares(const Waveform& voltage, const std::vector<doubl
 IonDistribution damped_arrival(const Sheath& sheath, const SheathIon& ion) {
     const double mean = sheath.voltage.mean(), entry = entry_energy_ev(sheath);
     require(std::isfinite(mean) && mean > 0, "the mean voltage across a sheath must be above zero");
+    require(sheath.voltage.lowest() >= 0, "the voltage across a sheath must not be negative");
     require(sheath.thickness_nm > 0, "a sheath thickness must be above zero");
     if (sheath.voltage.is_steady())
         return IonDistribution::thermal_fall(mean + entry, ion.transverse_ev, 0);
     const double transit = transit_time_s(sheath, ion.mass_amu);
     const Gains gains = gains_of(sheath, transit);
-    const Waveform energy = damped_voltage(sheath.voltage, transit, damping_limit(sheath))
-                                .raised_by(entry + gains.middle * mean);
-    const double low = std::max(0.0, energy.lowest()), high = energy.highest();
+    const double limit = damping_limit(sheath);
+    Waveform energy = filtered(sheath.voltage, transit, [&](double omega_tau) {
+        const double width = sheath.edge == SheathEdge::fixed ? shape_at(omega_tau).width : 1;
+        return width * damping(omega_tau, limit);
+    });
+    // A step overshoots by up to 1 %, which no ion can.
+    const double bottom = sheath.voltage.lowest(), top = sheath.voltage.highest();
+    for (double& v : energy.volt)
+        v = std::clamp(v, bottom, top);
+    energy = energy.raised_by(entry + gains.middle * mean);
+    const double low = energy.lowest(), high = energy.highest();
     const double all = high - low;
     if (!(all > 1e-6 * high))
         return IonDistribution::thermal_fall(mean + entry, ion.transverse_ev, 0);

@@ -21,10 +21,14 @@ Waveform damped_voltage(const Waveform& sheath_voltage, double transit_s, double
 /// both ends for relaxation_s = transit / 4 (Child's law).
 Waveform relaxed_voltage(const Waveform& sheath_voltage, double relaxation_s);
 
-/// Mean energy gained by ions in a swinging sheath over mean voltage plus entry energy, minus 1:
-/// ions enter evenly in time, yet more of them arrive when the voltage was high. One sine of
-/// amplitude `swing` times the mean voltage (at most 1), entry energy over mean voltage `entry`;
-/// from 48 trajectories by a fourth-order Runge-Kutta rule, to 1e-3 of the energy.
+/// Mean energy of ions at the wafer over mean voltage plus entry energy, minus 1, in a swinging
+/// sheath: ions enter evenly in time, yet more of them arrive with the energy of high voltages.
+/// `entry`: entry energy over mean voltage. From 48 trajectories for one sine, else 256, by a
+/// fourth-order Runge-Kutta rule, to 2e-3. The voltage must not be negative; `fastest_omega_tau` is
+/// that of its fastest part worth following.
+double mean_gain(const Waveform&, double transit_s, double fastest_omega_tau, double entry,
+                 double profile_power = 4 / 3., SheathEdge edge = SheathEdge::fixed);
+/// The same for a sine of amplitude `swing` (at most 1) times the mean voltage.
 double mean_gain(double omega_tau, double swing, double entry, double profile_power = 4 / 3.,
                  SheathEdge edge = SheathEdge::fixed);
 
@@ -33,10 +37,11 @@ double mean_gain(double omega_tau, double swing, double entry, double profile_po
 std::vector<double> time_shares(const Waveform&, const std::vector<double>& edges);
 
 /// Closed form for a sheath without collisions: the normal energy is the damped voltage plus half
-/// the electron temperature; the spread in angle is thermal. Arrivals are bunched so that the mean
-/// energy carries `mean_gain`, added up over the Fourier components (to second order in the swing
-/// they do not know of each other), and the middle of the spectrum is moved by what trajectories
-/// show, at most 9 % of the mean voltage.
+/// the electron temperature; the spread in angle is thermal. Beyond the damping it carries what
+/// trajectories show: the mean of `mean_gain`, brought in by a power of the energy on the arrivals,
+/// and small corrections of the middle (up to 9 % of the mean voltage) and the width (up to 6 %),
+/// tabulated over omega tau_i and added up over the Fourier components. Throws
+/// std::invalid_argument on a sheath that cannot be.
 IonDistribution damped_arrival(const Sheath&, const SheathIon&);
 
 } // namespace rille::fluxes

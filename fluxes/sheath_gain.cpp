@@ -13,24 +13,27 @@ constexpr double pi = 3.14159265358979323846;
 /// A sheath without units: x in sheath widths from the edge, time in widths over v0, energies in
 /// mean voltages, so that the square of a speed is an energy.
 struct Swung {
-    double omega, swing, power;
+    const std::vector<double>& voltage; ///< over its mean, the first sample again at the end
+    double turns_per_time, longest_step, power, first_x;
     bool moving, child;
 
     double pull(double time, double phase, double x) const {
-        const double voltage = 1 + swing * std::sin(omega * time + phase);
-        if (moving) // uniform ions: field 2 V / s at the wall, zero at an edge sqrt(V) away from it
-            return std::max(0.0, x - (1 - std::sqrt(std::max(0.0, voltage))));
+        const double turns = phase + time * turns_per_time;
+        const double place = (turns - std::floor(turns)) * double(voltage.size() - 1);
+        const auto i = std::min(static_cast<std::size_t>(place), voltage.size() - 2);
+        const double v = voltage[i] + (place - double(i)) * (voltage[i + 1] - voltage[i]);
+        // Uniform ions: zero at an edge sqrt(V) away from the wafer.
+        if (moving) return std::max(0.0, x - (1 - std::sqrt(std::max(0.0, v))));
         const double y = std::max(0.0, x);
-        return 0.5 * power * voltage * (child ? std::cbrt(y) : std::pow(y, power - 1));
+        return 0.5 * power * v * (child ? std::cbrt(y) : std::pow(y, power - 1));
     }
 
     /// Energy at the wafer of an ion that enters at `phase`, by Runge-Kutta steps.
     double arrival(double phase, double entry) const {
-        double time = 0, x = moving ? 1 - std::sqrt(1 + swing) : 0, v = std::sqrt(entry);
-        const double longest = std::min(0.04, 2 * pi / omega / 40);
+        double time = 0, x = first_x, v = std::sqrt(entry);
         const double slow = 0.1 * std::sqrt(entry) + 1e-3; // steps that grow with the flight
         while (time < 1e4) {
-            const double h = std::min(longest, 0.1 * time + slow);
+            const double h = std::min(longest_step, 0.1 * time + slow);
             const double a1 = pull(time, phase, x);
             const double v2 = v + 0.5 * h * a1;
             const double a2 = pull(time + 0.5 * h, phase, x + 0.5 * h * v);
@@ -57,19 +60,43 @@ struct Swung {
 
 } // namespace
 
-double mean_gain(double omega_tau, double swing, double entry, double profile_power,
-                 SheathEdge edge) {
-    if (!(omega_tau > 0 && std::isfinite(omega_tau)) || !(swing >= 0 && swing <= 1) ||
-        !(entry > 0 && std::isfinite(entry)))
-        throw std::invalid_argument(
-            "the mean gain needs a frequency and an entry energy above zero, a swing of 0 to 1");
-    constexpr int phases = 48;
-    const bool child = std::fabs(profile_power - 4 / 3.) < 1e-9;
-    const Swung sheath{omega_tau / 3, swing, profile_power, edge == SheathEdge::moving, child};
+double mean_gain(const Waveform& voltage, double transit_s, double fastest_omega_tau, double entry,
+                 double profile_power, SheathEdge edge) {
+    const double mean = voltage.mean();
+    if (!(entry > 0 && std::isfinite(entry)) || !(transit_s > 0) || !(voltage.period_s > 0) ||
+        !(fastest_omega_tau > 0) || !(mean > 0) || !(voltage.lowest() >= 0))
+        throw std::invalid_argument("the mean gain needs a swinging voltage that is not negative, "
+                                    "an entry energy and a transit time above zero");
+    std::vector<double> relative;
+    for (double v : voltage.volt)
+        relative.push_back(v / mean);
+    relative.push_back(relative.front());
+    const double turns = transit_s / voltage.period_s / 3; // per width over v0
+    const bool moving = edge == SheathEdge::moving;
+    const Swung sheath{relative,
+                       turns,
+                       std::clamp(2 * pi / (fastest_omega_tau / 3) / 40, 0.004, 0.04),
+                       profile_power,
+                       moving ? 1 - std::sqrt(voltage.highest() / mean) : 0.0,
+                       moving,
+                       std::fabs(profile_power - 4 / 3.) < 1e-9};
+    // One sine is smooth: few phases do.
+    const bool one_cycle = std::fabs(2 * pi * turns * 3 - fastest_omega_tau) < 1e-9;
+    const int phases = one_cycle ? 48 : 256;
     double sum = 0;
     for (int k = 0; k < phases; ++k)
-        sum += sheath.arrival(2 * pi * (k + 0.5) / phases, entry);
+        sum += sheath.arrival((k + 0.5) / phases, entry);
     return sum / phases / (1 + entry) - 1;
+}
+
+double mean_gain(double omega_tau, double swing, double entry, double profile_power,
+                 SheathEdge edge) {
+    if (!(omega_tau > 0 && std::isfinite(omega_tau)) || !(swing >= 0 && swing <= 1))
+        throw std::invalid_argument(
+            "the mean gain needs a frequency above zero, a swing of 0 to 1");
+    const double frequency = omega_tau / (2 * pi); // transit time 1
+    const Waveform voltage = Waveform::sum_of({{frequency, swing, 0}}).raised_by(1 + 1e-12);
+    return mean_gain(voltage, 1, omega_tau, entry, profile_power, edge);
 }
 
 } // namespace rille::fluxes

@@ -72,7 +72,8 @@ TEST_CASE("mean sheath voltage of an electrode that draws no current", "[wavefor
     // 100,
     //         300 V; ln I0(100/3) = 30.66492; amplitude 100: lowest 6.0316, highest 206.0316 V.
     // Source: flux balance over a period, derived here (Garscadden & Emeleus 1962, from memory).
-    // Tolerance: 1e-5 (printed digits); amplitude 1 % off must fail.
+    // Tolerance: 1e-5 (printed digits); balance 2e-3 (samples where the sheath is held at 0 V);
+    // amplitude 1 % off must fail.
     const double rows[4][2] = {{10, 19.6141}, {50, 57.0831}, {100, 106.0316}, {300, 304.3760}};
     for (const auto& row : rows) {
         const WaferBias bias = bias_from_voltage(sine(row[0]), circuit());
@@ -80,6 +81,7 @@ TEST_CASE("mean sheath voltage of an electrode that draws no current", "[wavefor
         CHECK(bias_from_voltage(sine(1.01 * row[0]), circuit()).mean_sheath_v !=
               Approx(row[1]).epsilon(1e-4));
         CHECK(bias.always_positive); // the plasma is above the wafer at all phases
+        CHECK(bias.sheath.lowest() > 0);
         CHECK(bias.sheath.mean() == Approx(bias.mean_sheath_v).epsilon(1e-12));
     }
     const WaferBias bias = bias_from_voltage(sine(100), circuit());
@@ -87,15 +89,15 @@ TEST_CASE("mean sheath voltage of an electrode that draws no current", "[wavefor
     CHECK(bias.sheath.lowest() == Approx(6.0316).epsilon(1e-4));
     CHECK(bias.sheath.highest() == Approx(206.0316).epsilon(1e-5));
     CHECK(std::isfinite(bias_from_voltage(sine(1e5), circuit()).mean_sheath_v)); // no overflow
-    // A part in 2 frequencies, and pulses, keep the balance of charge as well.
+    // Two frequencies, pulses and swings so large that the electrons saturate keep the balance.
     for (const Waveform& w : {Waveform::sum_of({{2e6, 100, 0}, {13.56e6, 40, 0}}),
-                              Waveform::rectangular(1e5, 0, -200, 0.3)}) {
+                              Waveform::rectangular(1e5, 0, -200, 0.3), sine(1e4)}) {
         const WaferBias b = bias_from_voltage(w, circuit());
         double electrons = 0;
         const int samples = 200000;
         for (int i = 0; i < samples; ++i)
             electrons += std::exp(-b.sheath.at(b.sheath.period_s * (i + 0.5) / samples) / 3);
-        CHECK(electrons / samples == Approx(std::exp(-floating_argon / 3)).epsilon(1e-3));
+        CHECK(electrons / samples == Approx(std::exp(-floating_argon / 3)).epsilon(2e-3));
     }
 }
 
