@@ -80,12 +80,12 @@ ArrivalBins bins_of(const std::vector<Arrival>& arrivals) {
     return {energy_edges, angle_edges, std::move(weight)};
 }
 
-IonDistribution distribution_of(const ArrivalBins& bins) {
-    return IonDistribution::histogram(bins.energy_edges_ev, bins.angle_edges_deg, bins.weight);
+IonDistribution ArrivalBins::distribution() const {
+    return IonDistribution::histogram(energy_edges_ev, angle_edges_deg, weight);
 }
 
 IonDistribution distribution_of(const std::vector<Arrival>& arrivals) {
-    return distribution_of(bins_of(arrivals));
+    return bins_of(arrivals).distribution();
 }
 
 } // namespace rille::fluxes

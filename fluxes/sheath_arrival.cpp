@@ -50,9 +50,9 @@ BinnedTrajectories follow_into_bins(const Sheath& sheath, const SheathIon& ion,
 SheathArrival arrival_of(const BinnedTrajectories& binned) {
     SheathArrival arrival;
     arrival.way = SheathWay::trajectories;
-    arrival.ions.push_back(distribution_of(binned.ions));
+    arrival.ions.push_back(binned.ions.distribution());
     if (binned.fast_neutrals_per_ion > 0)
-        arrival.fast_neutrals.push_back(distribution_of(binned.fast_neutrals));
+        arrival.fast_neutrals.push_back(binned.fast_neutrals.distribution());
     arrival.fast_neutrals_per_ion = binned.fast_neutrals_per_ion;
     return arrival;
 }

@@ -53,11 +53,12 @@ Arrivals follow_ions(const Sheath&, const SheathIon&, const TrajectorySampling&)
 struct ArrivalBins {
     std::vector<double> energy_edges_ev, angle_edges_deg;
     std::vector<std::vector<double>> weight;
+
+    IonDistribution distribution() const;
 };
 /// The bins are halved where they blur the most, so that narrow beams and wide tails are both
 /// resolved. Throws std::invalid_argument on no arrivals or such that cannot be.
 ArrivalBins bins_of(const std::vector<Arrival>&);
-IonDistribution distribution_of(const ArrivalBins&);
 IonDistribution distribution_of(const std::vector<Arrival>&);
 
 } // namespace rille::fluxes
