@@ -164,6 +164,17 @@ InPlane from_bundles(std::vector<double> angle, const std::vector<Bundle>& bundl
     return plane;
 }
 
+/// Layers, ordered by falling spread, in bundles that span a factor of 1.25 at most.
+std::vector<Bundle> bundles_of(const std::vector<Layer>& layers) {
+    std::vector<Bundle> bundles;
+    for (const Layer& layer : layers) {
+        if (bundles.empty() || bundles.back().front().sigma > 1.25 * layer.sigma)
+            bundles.emplace_back();
+        bundles.back().push_back(layer);
+    }
+    return bundles;
+}
+
 double share_above(const std::vector<Layer>& layers, double phi) {
     double sum = 0;
     for (const Layer& l : layers)
@@ -183,14 +194,7 @@ InPlane vertical(const std::vector<Layer>& layers) {
 InPlane from_layers(const std::vector<Layer>& layers, bool fixed_energy) {
     const auto angle =
         symmetric_edges([&](double phi) { return share_above(layers, phi); }, 0.5 * pi);
-    const bool one = layers.front().sigma < 1.2 * layers.back().sigma || layers.size() == 1;
-    std::vector<Bundle> bundles;
-    if (one)
-        bundles.push_back(layers);
-    else
-        for (const Layer& layer : layers)
-            bundles.push_back({layer});
-    return from_bundles(angle, bundles, fixed_energy);
+    return from_bundles(angle, bundles_of(layers), fixed_energy);
 }
 
 InPlane from_thermal_fall(const ThermalFall& law) {
@@ -201,16 +205,12 @@ InPlane from_thermal_fall(const ThermalFall& law) {
 InPlane from_spectrum(const FallingSpectrum& law) {
     const std::vector<Layer> layers = spectrum_layers(law);
     if (!(law.transverse_ev > 0)) return vertical(layers);
-    // Bundles of spreads within a quarter; the edges may follow the bundles' means.
-    std::vector<Bundle> bundles;
-    std::vector<Layer> mean;
-    for (const Layer& layer : layers) {
-        if (bundles.empty() || bundles.back().front().sigma > 1.25 * layer.sigma) {
-            bundles.emplace_back();
-            mean.push_back({0, 0, layer.sigma});
-        }
-        bundles.back().push_back(layer);
-        mean.back().weight += layer.weight;
+    const std::vector<Bundle> bundles = bundles_of(layers);
+    std::vector<Layer> mean; // the edges may follow the bundles
+    for (const Bundle& bundle : bundles) {
+        mean.push_back({0, 0, bundle[bundle.size() / 2].sigma});
+        for (const Layer& layer : bundle)
+            mean.back().weight += layer.weight;
     }
     const auto angle = symmetric_edges([&](double phi) { return share_above(mean, phi); }, 0.5 * pi,
                                        1e-5 * std::min(1.0, layers.back().sigma));

@@ -56,6 +56,54 @@ inline double entry_energy_ev(const Sheath& sheath) {
     return 0.5 * sheath.electron_temperature_ev;
 }
 
+/// Law by which the thickness was set.
+enum class SheathLaw {
+    child,      ///< collisionless
+    collisional ///< drift between charge exchanges of a constant mean free path
+};
+
+/// Where a sheath leaves the range of its law.
+struct SheathNote {
+    enum class Kind {
+        weak_field, ///< value: Child's field at the wall over the exact one, minus 1, above 8 %
+        between_regimes, ///< value: mean free path over Child's thickness, 0.3 to 1
+        slow_drift,      ///< value: energy gained per mean free path over the gas temperature, < 1
+        not_positive     ///< value: lowest voltage [V]; the wafer must stay below the plasma
+    };
+    Kind kind;
+    double value;
+};
+/// One sentence about a note.
+std::string in_words(const SheathNote&);
+
+/// How thick a sheath is and why.
+struct SheathThickness {
+    SheathLaw law = SheathLaw::child;
+    double nm = 0;            ///< the smaller of Child's and the collisional thickness
+    double debye_lengths = 0; ///< the same in Debye lengths at the edge
+    double child_nm = 0, matrix_nm = 0;
+    double collisional_nm = 0; ///< infinite without collisions
+    double mean_free_path_nm = 0;
+    std::vector<SheathNote> notes;
+};
+
+struct SheathAndThickness {
+    Sheath sheath;
+    SheathThickness thickness;
+};
+
+/// The sheath of a mean voltage: thickness by the smaller of Child's law and the collisional law
+/// (they cross at a mean free path of 0.3016 of Child's thickness), edge moving: the matrix
+/// thickness. An infinite mean free path means no collisions. Throws std::invalid_argument on
+/// densities, temperatures and voltages that cannot be; a voltage that dips below zero is noted.
+SheathAndThickness make_sheath(double electron_temperature_ev, double edge_density,
+                               const Waveform& voltage, double mean_free_path_nm,
+                               double gas_temperature_k = 300, SheathEdge edge = SheathEdge::fixed);
+
+/// Between two collisions of any kind at this energy against targets at rest [nm]; infinite without
+/// collisions.
+double mean_free_path_nm(const SheathIon&, double energy_ev);
+
 /// Time that an ion takes through the mean sheath from rest, 3 s / v0 with v0 = sqrt(2 e V / M)
 /// [s] (Child law; derived).
 double transit_time_s(const Sheath&, double mass_amu);

@@ -31,9 +31,12 @@ double common_frequency(const std::vector<BiasComponent>& parts) {
     });
     if (harmonic) return lowest;
     std::int64_t divisor = 0;
-    for (const BiasComponent& part : parts)
-        divisor = std::gcd(divisor, std::int64_t(std::llround(part.frequency_hz / 1e3)));
-    require(divisor > 0, "several bias frequencies need a common period: whole kHz");
+    for (const BiasComponent& part : parts) {
+        const double khz = part.frequency_hz / 1e3;
+        require(std::fabs(std::round(khz) - khz) < 1e-3 * khz,
+                "several bias frequencies need a common period: whole kHz or harmonics of one");
+        divisor = std::gcd(divisor, std::int64_t(std::llround(khz)));
+    }
     return 1e3 * double(divisor);
 }
 

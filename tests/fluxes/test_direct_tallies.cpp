@@ -179,6 +179,31 @@ TEST_CASE("direct ions, extruded: first-step rate of a vertical wall", "[direct]
     }
 }
 
+namespace {
+
+IonDistribution spread_law(int which) {
+    const auto thermal = IonDistribution::thermal_fall(60, 2.0, 2.0);
+    const auto histogram =
+        IonDistribution::histogram({40, 60, 120}, {0, 5, 15, 30}, {{2, 3, 1}, {4, 1, 0.5}});
+    const auto spectrum = IonDistribution::falling_spectrum({30, 60, 90, 240}, {2, 1, 3}, 1.0);
+    switch (which) {
+    case 0:
+        return thermal;
+    case 1:
+        return histogram;
+    case 2:
+        return spectrum;
+    case 3:
+        return IonDistribution::mixture({1, 2}, {spectrum, histogram});
+    case 4:
+        return spectrum.tilted(4, 30);
+    default:
+        return thermal.tilted(12, 90);
+    }
+}
+
+} // namespace
+
 TEST_CASE("direct ions: tallies of a yield over an open plane", "[direct]") {
     // Oracle: flat open surface, normal turned to psi: sum over ions of (r.n)/r_z Y(E, r.n), summed
     // over
@@ -189,10 +214,7 @@ TEST_CASE("direct ions: tallies of a yield over an open plane", "[direct]") {
     d.cells_x = 20;
     const Surface s = tests::polyline(d, {{-10, 0, 0}, {10, 0, 0}}, 1.0);
     const RayCaster caster(d, s, 5);
-    const auto ions =
-        GENERATE(as<int>(), 0, 1) == 0
-            ? IonDistribution::thermal_fall(60, 2.0, 2.0)
-            : IonDistribution::histogram({40, 60, 120}, {0, 5, 15, 30}, {{2, 3, 1}, {4, 1, 0.5}});
+    const auto ions = spread_law(GENERATE(range(0, 6)));
     const YieldFunction yield{SquareRootLaw{0.02, 45}, YamamuraAngle{2.2, 62}, 1.0};
     const DirectIons direct(d, s, caster, {{"X+", 40, 3.0, ions}}, {{0, yield}}, {});
     for (double psi : {0.0, 20.0, 45.0, 63.0, 75.0}) {
@@ -201,8 +223,8 @@ TEST_CASE("direct ions: tallies of a yield over an open plane", "[direct]") {
         for (int i = 0; i < count; ++i) {
             // A lattice of rank one, unlike the nested points of the program.
             const auto u = [&](double g) { return std::fmod(0.5 + i * g, 1.0); };
-            const IonSample ion = ions.sample(
-                {u(0.8191725133961645), u(0.6710436067037893), u(0.5497004779019703), 0.5});
+            const IonSample ion = ions.sample({u(0.8191725133961645), u(0.6710436067037893),
+                                               u(0.5497004779019703), u(0.4503142577212985)});
             const double c = -(ion.direction.x * std::sin(psi * degree) +
                                ion.direction.z * std::cos(psi * degree));
             if (c > 0) sum += 3.0 * c / -ion.direction.z * yield(ion.energy_ev, c) / count;
