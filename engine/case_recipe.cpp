@@ -123,7 +123,7 @@ struct StepBuilder {
                          fmt::format("no film of the stack is called {}; there are: {}{}",
                                      quoted(film.text), listed(below, 8),
                                      did_you_mean(film.text, below)));
-        else if (index == result.substrate_first)
+        else if (index == result.substrate_first && result.liner_thickness <= 0)
             problems.add(film.at, film.path,
                          fmt::format("{} is the topmost film: it is reached before the etch",
                                      quoted(film.text)));

@@ -61,6 +61,16 @@ geometry::GrownFilms initial_films(const Case& c, std::size_t elements) {
     return films;
 }
 
+/// What lies below each of these films at the start: the drawn shape, and the liner on it.
+geometry::FilmBases initial_bases(const Case& c) {
+    std::vector<std::function<double(const Vec3&)>> below;
+    const std::size_t films = initial_films(c, 0).material.size();
+    for (std::size_t f = 0; f < films; ++f)
+        below.push_back(
+            geometry::initial_distance(c.domain, c.mask, f == 0 ? 0.0 : c.liner_thickness));
+    return {c.domain, below, 0, c.mask.thickness + c.liner_thickness};
+}
+
 double highest(const Surface& surface) {
     double z = -std::numeric_limits<double>::infinity();
     for (const Vec3& v : surface.vertices)
@@ -80,7 +90,7 @@ void check_lost_rays(const Health& health) {
 Simulation::Simulation(const Case& the_case)
     : case_(the_case), stack_(the_case.films), front_(initial_front(the_case)),
       surface_(geometry::extract_surface(front_)), films_(initial_films(the_case, surface_.size())),
-      open_field_(the_case) {
+      bases_(initial_bases(the_case)), open_field_(the_case) {
     for (int b = 0; b < fluxes::batches; ++b)
         error_fields_.push_back({"displacement error " + std::to_string(b),
                                  geometry::Carry::intensive,
@@ -325,6 +335,8 @@ void Simulation::accept(Trial&& trial, const fluxes::SurfaceStep& step) {
     }
     front_ = std::move(trial.front);
     surface_ = std::move(trial.surface);
+    bases_.follow(front_);
+    bases_.settle(front_, surface_, films_);
     present_valid_ = false;
     open_field_.advance(dt, recipe().plasma);
     time_s_ += dt;

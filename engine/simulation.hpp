@@ -5,6 +5,7 @@
 #include "engine/open_field.hpp"
 #include "engine/run_record.hpp"
 #include "fluxes/surface_step.hpp"
+#include "geometry/film_bases.hpp"
 #include "geometry/front.hpp"
 #include "geometry/ray_caster.hpp"
 #include "geometry/topology.hpp"
@@ -112,6 +113,7 @@ private:
     geometry::Front front_;
     geometry::Surface surface_;
     geometry::GrownFilms films_;
+    geometry::FilmBases bases_; ///< one per grown film
     std::vector<geometry::SurfaceField> error_fields_; ///< one per batch
     fluxes::SurfaceStep present_;
     bool present_valid_ = false;
