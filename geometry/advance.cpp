@@ -12,16 +12,22 @@ namespace rille::geometry {
 
 namespace {
 
+constexpr double unresolved = 0.02; ///< steepness off by more comes from a bend within a cell
 constexpr double edge_margin = 1.4; ///< [cells] the contour may come nearer the edge of the band
 
 } // namespace
 
 /// dphi/dt = R(n) |grad phi| + sum of a (slope+ - slope-) / 2: the solid (phi < 0) recedes at R.
 /// Where R is the same for all normals Godunov's flux needs no dissipation.
-double Advance::change(const Slopes& s, const RowPair& row, Speed& speed) const {
+double Advance::change(const Slopes& s, const RowPair& row, Speed& speed, bool even) const {
     if (tables_.constant(row)) {
         speed.rate = tables_.rate(row, 0);
-        const double steep = upwind_steepness(s, speed.rate > 0, speed.waves);
+        double steep = upwind_steepness(s, speed.rate > 0, speed.waves);
+        if (even) {
+            double waves;
+            const double down = upwind_steepness(s, speed.rate <= 0, waves);
+            if ((steep - 1) * (down - 1) <= 0 && std::fabs(steep - 1) > unresolved) steep = 1;
+        }
         speed.waves *= std::fabs(speed.rate);
         return speed.rate * steep;
     }
@@ -37,7 +43,7 @@ double Advance::change(const Slopes& s, const RowPair& row, Speed& speed) const 
 }
 
 /// The same at the mean rate over `dt` through layers: each acts for its share of the time.
-double Advance::layered_change(const Slopes& s, const Layers& layers, double dt) const {
+double Advance::layered_change(const Slopes& s, const Layers& layers, double dt, bool even) const {
     std::array<double, Layers::capacity> share;
     const double angle = tilt_of(extruded_, s.mean(0), s.mean(1), s.mean(2)).angle;
     walk(tables_, layers, angle, dt, share);
@@ -45,7 +51,7 @@ double Advance::layered_change(const Slopes& s, const Layers& layers, double dt)
     for (int k = 0; k < layers.count; ++k) {
         Speed speed;
         if (share[k] > 0 && layers.row[k].row >= 0)
-            sum += share[k] * change(s, layers.row[k], speed);
+            sum += share[k] * change(s, layers.row[k], speed, even);
     }
     return sum;
 }
@@ -75,7 +81,7 @@ Speed Advance::first_stage() {
             slope_[c] = 0;
             if (!tables_.moves(row)) continue;
             Speed speed;
-            slope_[c] = change(slopes(phi, c), row, speed);
+            slope_[c] = change(slopes(phi, c), row, speed, even_[c]);
             waves = std::max(waves, speed.waves);
             if (std::fabs(phi[c]) < h_) fastest = std::max(fastest, std::fabs(speed.rate));
         }
@@ -101,7 +107,7 @@ void Advance::step(double dt) {
         for (std::size_t l = begin; l < end; ++l) {
             const std::size_t c = layered_[l].cell;
             slope_[c] = layered_change(special_slopes(band_.phi.data(), layered_[l]),
-                                       layered_[l].layers, dt);
+                                       layered_[l].layers, dt, even_[c]);
         }
     });
     for_ranges(band_.size(), [&](std::size_t begin, std::size_t end) {
@@ -114,7 +120,7 @@ void Advance::step(double dt) {
             const RowPair& row = row_[c];
             if (!tables_.moves(row)) continue;
             Speed speed;
-            const double second = change(slopes(next, c), row, speed);
+            const double second = change(slopes(next, c), row, speed, even_[c]);
             band_.phi[c] += 0.5 * dt * (slope_[c] + second);
         }
     });
@@ -122,7 +128,7 @@ void Advance::step(double dt) {
         for (std::size_t l = begin; l < end; ++l) {
             const std::size_t c = layered_[l].cell;
             const LayeredCell& at = layered_[l];
-            const double second = layered_change(special_slopes(next, at), at.layers, dt);
+            const double second = layered_change(special_slopes(next, at), at.layers, dt, even_[c]);
             const double time = report_.time + dt - time_of_refresh_;
             band_.phi[c] = std::min(band_.phi[c] + 0.5 * dt * (slope_[c] + second),
                                     at.wall + at.wall_rate * time);

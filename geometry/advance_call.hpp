@@ -66,9 +66,10 @@ private:
         return extruded_ ? slopes_2d(band_, phi, c, 1 / h_, unseen)
                          : slopes_3d(band_, phi, c, 1 / h_, unseen);
     }
-    double change(const Slopes&, const RowPair&, Speed&) const;
+    void find_even_cells(const ClosestElements&);
+    double change(const Slopes&, const RowPair&, Speed&, bool even = false) const;
     void blend(RowPair&, const BetweenCentres&) const;
-    double layered_change(const Slopes&, const Layers&, double dt) const;
+    double layered_change(const Slopes&, const Layers&, double dt, bool even) const;
     Speed first_stage();
     void find_layers(LayeredCell&, Speed&);
     double choose_step(const Speed&) const;
@@ -92,6 +93,7 @@ private:
     double time_of_refresh_ = 0;     ///< [s]
     std::vector<int> element_;
     std::vector<RowPair> row_;
+    std::vector<char> even_;           ///< cells that no faster front beside them will reach
     std::vector<double> slope_, next_; ///< dphi/dt at the first stage; phi after it
     std::vector<LayeredCell> layered_;
     std::vector<int> layered_elements_;

@@ -10,6 +10,10 @@
 
 namespace rille::geometry {
 
+namespace {
+constexpr double even_share = 1.02; ///< a neighbour's rate may be larger by as much
+} // namespace
+
 /// Nearest elements, redistancing and rows for the present band; `surface` displaced by `moved`.
 void Advance::refresh() {
     const bool first = report_.sub_steps == 0;
@@ -24,10 +28,38 @@ void Advance::refresh() {
             band_.phi[c] = std::copysign(4 * h_, band_.phi[c]);
     classify_elements();
     classify_cells(closest);
+    find_even_cells(closest);
     slope_.assign(band_.size(), 0.0);
     next_ = band_.phi;
     moved_since_refresh_ = 0;
     time_of_refresh_ = report_.time;
+}
+
+/// full: whether phi of a cell is the time at which the front passes it, but for the rate: where
+/// the rate does not depend on the normal and no neighbour has a faster one to spread from.
+void Advance::find_even_cells(const ClosestElements& closest) {
+    even_.assign(band_.size(), 0);
+    if (extruded_) return;
+    std::vector<double> rate(band_.size(), 0.0); // NaN where it depends on the normal
+    for_ranges(band_.size(), [&](std::size_t begin, std::size_t end) {
+        for (std::size_t c = begin; c < end; ++c) {
+            const int e = element_[c];
+            if (e < 0) continue;
+            const Band::Cell& cell = band_.cells[c];
+            const Foot foot = foot_of(band_.domain.node(cell.i, cell.j, cell.k), band_.phi[c],
+                                      closest.foot[c], surface_.normal[e], h_);
+            const int row = row_[c].row == layered_row ? finder_.row_below(e, foot) : row_[c].row;
+            rate[c] = tables_.constant(row) ? tables_.rate(row, 0)
+                                            : std::numeric_limits<double>::quiet_NaN();
+        }
+    });
+    for_ranges(band_.size(), [&](std::size_t begin, std::size_t end) {
+        for (std::size_t c = begin; c < end; ++c) {
+            const double most = even_share * std::fabs(rate[c]);
+            even_[c] = std::all_of(band_.neighbour[c].begin(), band_.neighbour[c].end(),
+                                   [&](int n) { return n < 0 || std::fabs(rate[n]) <= most; });
+        }
+    });
 }
 
 void Advance::classify_cells(const ClosestElements& closest) {

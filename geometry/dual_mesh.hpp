@@ -7,6 +7,7 @@
 #include "geometry/extract_surface.hpp"
 
 #include <array>
+#include <cmath>
 #include <cstdint>
 #include <vector>
 
@@ -38,6 +39,10 @@ struct DualMesh {
     std::vector<DualQuad> quads;
     std::vector<int> cell_of_vertex;
     std::vector<Vec3> position; ///< per vertex [nm]
+    std::vector<Vec3> crossing; ///< per quad: where the surface crosses its grid edge [nm]
+    std::vector<Vec3> normal;   ///< per quad, unit; 0 where it has collapsed
+    std::vector<int> first;     ///< per vertex, and one more: where its quads start in `round`
+    std::vector<int> round;     ///< quads round each vertex, by rising number
 };
 
 /// Number of the edge along `axis` that starts at cube corner `corner`.
@@ -69,12 +74,26 @@ struct CrossedCell {
 };
 CrossedCell crossed_cell(const Band&, const DualMesh&, int vertex);
 
-/// Puts every vertex at the mean of its crossings: on the zero contour to second order, on a plane
-/// to round-off.
+/// Puts every vertex at the mean of its crossings, lifted onto the curved surface through them: on
+/// a plane to round-off. Fills all of the mesh.
 void place_vertices(const Band&, DualMesh&);
 
 /// Moves vertices near sharp edges and corners onto the planes fitted to either side, where
 /// one-sided normals differ by more than 30 degrees.
-void sharpen(const Band&, DualMesh&, Edges);
+void sharpen(const Band&, DualMesh&);
+
+/// Normal of a quad, twice its area long [nm^2].
+Vec3 across(const Domain&, const DualMesh&, const DualQuad&);
+
+/// b - a [nm], through the nearest image in a periodic domain.
+inline Vec3 between(const Domain& domain, const Vec3& a, const Vec3& b) {
+    Vec3 d = b - a;
+    if (domain.sides == Sides::periodic) {
+        const double wx = domain.width_x(), wy = domain.width_y();
+        if (std::fabs(d.x) > 0.5 * wx) d.x -= wx * std::round(d.x / wx);
+        if (std::fabs(d.y) > 0.5 * wy) d.y -= wy * std::round(d.y / wy);
+    }
+    return d;
+}
 
 } // namespace rille::geometry

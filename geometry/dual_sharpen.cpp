@@ -1,4 +1,5 @@
 // SPDX-License-Identifier: Apache-2.0
+#include "geometry/curved_face.hpp"
 #include "geometry/dual_mesh.hpp"
 #include "geometry/ranges.hpp"
 
@@ -11,66 +12,18 @@ namespace {
 
 constexpr double flat_cosine = 0.978;  ///< 12 deg: quads round a vertex away from edges
 constexpr double sharp_cosine = 0.906; ///< 25 deg: a vertex worth looking at
-constexpr double edge_cosine = 0.866;  ///< 30 deg between one-sided normals: an edge
-constexpr double third_cosine = 0.707; ///< 45 deg to both faces of an edge: a third face
-constexpr double reach = 4.6;          ///< [cells] faces are fitted within
-constexpr double undisturbed = 1.8;    ///< [cells] of an element's centre from the other face
-constexpr double lateral = 0.8;        ///< [cells] weight along an edge: it may be curved
-
-/// What a fit must show before it counts as an edge.
-struct Demands {
-    double least_weight;   ///< undisturbed elements that a face needs
-    double largest_spread; ///< of the angle between faces; more is a round surface
-};
-constexpr Demands drawn{1e-9, 0.35}, etched{1.0, 0.10};
-
-/// A fitted face; `point` relative to the vertex at hand, in cells.
-struct Face {
-    Vec3 point{0, 0, 0}, normal{0, 0, 0};
-    double weight = 0;
-    double value(const Vec3& p) const { return normal.dot(p - point); }
-};
-
-struct Sample {
-    Vec3 point, normal;
-    int face = 0;
-    double weight = 1;
-};
-
-/// Up to three faces that meet near a vertex, as a solid: max of the faces where their edge is
-/// convex, min where it is concave.
-struct LocalSolid {
-    std::array<Face, 3> face;
-    int count = 0;
-
-    bool convex(int a, int b) const {
-        return (face[b].point - face[a].point).dot(face[a].normal - face[b].normal) < 0;
-    }
-    double value(const Vec3& p) const {
-        const double f0 = face[0].value(p), f1 = face[1].value(p);
-        if (count == 2) return convex(0, 1) ? std::max(f0, f1) : std::min(f0, f1);
-        const double f[3] = {f0, f1, face[2].value(p)};
-        const bool c01 = convex(0, 1), c02 = convex(0, 2), c12 = convex(1, 2);
-        const int convex_pairs = c01 + c02 + c12;
-        if (convex_pairs == 3) return std::max({f[0], f[1], f[2]});
-        if (convex_pairs == 0) return std::min({f[0], f[1], f[2]});
-        // The odd pair belongs together; the third face meets both in the other way.
-        const bool odd = convex_pairs == 1;
-        const int alone = c12 == odd ? 0 : c02 == odd ? 1 : 2;
-        const double a = f[(alone + 1) % 3], b = f[(alone + 2) % 3];
-        return odd ? std::min(f[alone], std::max(a, b)) : std::max(f[alone], std::min(a, b));
-    }
-};
+constexpr double bent = 0.35;          ///< [rad] turn at a quad that halves its say in a face
+constexpr double turned_over = 0.2;    ///< cosine of an element that lies the wrong way
+constexpr double laid_together = -0.8; ///< cosine between two elements that meet back to back
+constexpr double folded_area = 0.02;   ///< [cells^2] twice the area of an element that matters
+constexpr double reach = 4.2;          ///< [cells] faces are fitted within
 
 class Sharpener {
 public:
-    Sharpener(const Band& band, DualMesh& mesh, const Demands& demands)
-        : demands_(demands), band_(band), mesh_(mesh), h_(band.domain.spacing),
-          periodic_(band.domain.sides == Sides::periodic) {}
+    Sharpener(const Band& band, DualMesh& mesh)
+        : band_(band), mesh_(mesh), h_(band.domain.spacing) {}
 
     void run() {
-        measure_quads();
-        link();
         mark();
         std::vector<int> work;
         for (int v = 0; v < static_cast<int>(sharp_.size()); ++v)
@@ -81,79 +34,74 @@ public:
             for (std::size_t n = first; n < last; ++n)
                 moved[n] = settle(work[n], stamp);
         });
+        const std::vector<Vec3> blunt = mesh_.position;
         for (std::size_t n = 0; n < work.size(); ++n)
             mesh_.position[work[n]] = moved[n];
+        unfold(work, blunt);
     }
 
 private:
-    Vec3 corner(const DualQuad& q, int m) const {
-        Vec3 p = mesh_.position[q.vertex[m]];
-        if (q.image[m] & 1) p.x -= band_.domain.width_x();
-        if (q.image[m] & 2) p.y -= band_.domain.width_y();
-        return p;
-    }
-
-    /// b - a, through the nearest image in a periodic domain.
-    Vec3 between(const Vec3& a, const Vec3& b) const {
-        Vec3 d = b - a;
-        if (periodic_) {
-            d.x -= band_.domain.width_x() * std::round(d.x / band_.domain.width_x());
-            d.y -= band_.domain.width_y() * std::round(d.y / band_.domain.width_y());
+    /// Puts vertices back where moving them turned an element over, or laid one on another: a mesh
+    /// of the contour looks out of the solid along the grid edge that each element crosses.
+    void unfold(const std::vector<int>& work, const std::vector<Vec3>& blunt) {
+        std::vector<char> back(work.size());
+        for (int round = 0; round < 4; ++round) {
+            over_ranges(work.size(), 512, [&](std::size_t first, std::size_t last) {
+                for (std::size_t n = first; n < last; ++n)
+                    back[n] = mesh_.position[work[n]] != blunt[work[n]] && folded(work[n]);
+            });
+            if (std::none_of(back.begin(), back.end(), [](char b) { return b; })) return;
+            for (std::size_t n = 0; n < work.size(); ++n)
+                if (back[n]) mesh_.position[work[n]] = blunt[work[n]];
         }
-        return d;
     }
 
-    void measure_quads() {
-        centre_.resize(mesh_.quads.size());
-        normal_.resize(mesh_.quads.size());
-        over_ranges(mesh_.quads.size(), 4096, [&](std::size_t first, std::size_t last) {
-            for (std::size_t n = first; n < last; ++n) {
-                const DualQuad& q = mesh_.quads[n];
-                const Vec3 a = corner(q, 0), b = corner(q, 1), c = corner(q, 2), d = corner(q, 3);
-                centre_[n] = (a + b + c + d) * 0.25;
-                const Vec3 cross = (c - a).cross(d - b);
-                const double length = cross.length();
-                normal_[n] = length > 1e-12 * h_ * h_ ? cross / length : Vec3(0, 0, 0);
-            }
-        });
-    }
-
-    /// Quads round each vertex.
-    void link() {
-        first_.assign(mesh_.position.size() + 1, 0);
-        for (const DualQuad& q : mesh_.quads)
-            for (int v : q.vertex)
-                ++first_[v + 1];
-        for (std::size_t v = 1; v < first_.size(); ++v)
-            first_[v] += first_[v - 1];
-        round_.resize(first_.back());
-        std::vector<int> fill(first_.begin(), first_.end() - 1);
-        for (std::size_t n = 0; n < mesh_.quads.size(); ++n)
-            for (int v : mesh_.quads[n].vertex)
-                round_[fill[v]++] = static_cast<int>(n);
+    bool folded(int v) const {
+        std::array<Vec3, 12> seen;
+        std::size_t count = 0;
+        for (int a = mesh_.first[v]; a < mesh_.first[v + 1]; ++a) {
+            const DualQuad& q = mesh_.quads[mesh_.round[a]];
+            Vec3 n = across(band_.domain, mesh_, q);
+            const double twice_area = n.length();
+            if (!(twice_area > folded_area * h_ * h_)) continue;
+            n /= twice_area;
+            if ((q.up ? n[q.axis] : -n[q.axis]) < -turned_over) return true;
+            for (std::size_t m = 0; m < count; ++m)
+                if (n.dot(seen[m]) < laid_together) return true;
+            if (count < seen.size()) seen[count++] = n;
+        }
+        return false;
     }
 
     double least_cosine(int v) const {
         double least = 1;
-        for (int a = first_[v]; a < first_[v + 1]; ++a)
-            for (int b = first_[v]; b < a; ++b)
-                least = std::min(least, normal_[round_[a]].dot(normal_[round_[b]]));
+        for (int a = mesh_.first[v]; a < mesh_.first[v + 1]; ++a)
+            for (int b = mesh_.first[v]; b < a; ++b)
+                least =
+                    std::min(least, mesh_.normal[mesh_.round[a]].dot(mesh_.normal[mesh_.round[b]]));
         return least;
     }
 
     void mark() {
         const std::size_t vertices = mesh_.position.size();
-        flat_.resize(vertices);
+        turn_.resize(vertices);
+        trust_.resize(mesh_.quads.size());
         clean_.resize(mesh_.quads.size());
         sharp_.resize(vertices);
         over_ranges(vertices, 4096, [&](std::size_t first, std::size_t last) {
             for (std::size_t v = first; v < last; ++v)
-                flat_[v] = least_cosine(static_cast<int>(v)) > flat_cosine;
+                turn_[v] = least_cosine(static_cast<int>(v));
         });
         over_ranges(mesh_.quads.size(), 4096, [&](std::size_t first, std::size_t last) {
             for (std::size_t n = first; n < last; ++n) {
                 const auto& v = mesh_.quads[n].vertex;
-                clean_[n] = flat_[v[0]] && flat_[v[1]] && flat_[v[2]] && flat_[v[3]];
+                clean_[n] =
+                    std::all_of(v.begin(), v.end(), [&](int w) { return turn_[w] > flat_cosine; });
+                double least = 1;
+                for (int w : v)
+                    least = std::min(least, turn_[w]);
+                const double turn = std::acos(std::clamp(least, -1.0, 1.0)) / bent;
+                trust_[n] = 1 / (1 + turn * turn * turn * turn);
             }
         });
         over_ranges(vertices, 4096, [&](std::size_t first, std::size_t last) {
@@ -165,140 +113,47 @@ private:
     /// Normals within two rings of quads that turn by more than 25 degrees, not all cleanly.
     bool looks_sharp(int v) const {
         bool all_clean = true;
-        for (int a = first_[v]; a < first_[v + 1]; ++a)
-            all_clean = all_clean && clean_[round_[a]];
+        for (int a = mesh_.first[v]; a < mesh_.first[v + 1]; ++a)
+            all_clean = all_clean && clean_[mesh_.round[a]];
         if (all_clean) return false;
-        const Vec3& n = normal_[round_[first_[v]]];
-        double least = least_cosine(v);
-        for (int a = first_[v]; a < first_[v + 1]; ++a)
-            for (int w : mesh_.quads[round_[a]].vertex)
-                for (int b = first_[w]; b < first_[w + 1]; ++b)
-                    least = std::min(least, n.dot(normal_[round_[b]]));
+        const Vec3& n = mesh_.normal[mesh_.round[mesh_.first[v]]];
+        double least = turn_[v];
+        for (int a = mesh_.first[v]; a < mesh_.first[v + 1]; ++a)
+            for (int w : mesh_.quads[mesh_.round[a]].vertex)
+                for (int b = mesh_.first[w]; b < mesh_.first[w + 1]; ++b)
+                    least = std::min(least, n.dot(mesh_.normal[mesh_.round[b]]));
         return least < sharp_cosine;
     }
 
-    /// Clean quads within `reach` of vertex v, reached over the surface.
-    std::vector<Sample> samples_near(int v, std::vector<int>& stamp) const {
-        std::vector<Sample> samples;
-        std::vector<int> queue{v}, seen_quads;
+    /// Quads within `reach` of vertex v, reached over the surface.
+    std::vector<FaceSample> samples_near(int v, std::vector<int>& stamp) const {
+        std::vector<FaceSample> samples;
+        std::vector<int> queue{v};
         const Vec3 here = mesh_.position[v];
         stamp[v] = v;
         for (std::size_t at = 0; at < queue.size(); ++at)
-            for (int a = first_[queue[at]]; a < first_[queue[at] + 1]; ++a) {
-                const int n = round_[a];
-                if (clean_[n] &&
-                    std::find(mesh_.quads[n].vertex.begin(), mesh_.quads[n].vertex.end(),
-                              queue[at]) == mesh_.quads[n].vertex.begin()) {
-                    const Vec3 p = between(here, centre_[n]) / h_;
-                    if (p.length() < reach) samples.push_back({p, normal_[n]});
-                }
-                for (int w : mesh_.quads[n].vertex) {
-                    if (stamp[w] == v) continue;
+            for (int a = mesh_.first[queue[at]]; a < mesh_.first[queue[at] + 1]; ++a) {
+                const DualQuad& q = mesh_.quads[mesh_.round[a]];
+                bool first = true; // a quad is taken when its first vertex comes up
+                for (int w : q.vertex) {
+                    if (stamp[w] == v) {
+                        const auto place = std::find(queue.begin(), queue.begin() + at, w);
+                        first = first && place == queue.begin() + at;
+                        continue;
+                    }
                     stamp[w] = v;
-                    if (between(here, mesh_.position[w]).length() < reach * h_) queue.push_back(w);
+                    if (between(band_.domain, here, mesh_.position[w]).length() < reach * h_)
+                        queue.push_back(w);
                 }
+                if (!first || mesh_.normal[mesh_.round[a]].length2() < 0.5) continue;
+                FaceSample s;
+                s.point = between(band_.domain, here, mesh_.crossing[mesh_.round[a]]) / h_;
+                if (s.point.length() > reach) continue;
+                s.normal = mesh_.normal[mesh_.round[a]];
+                s.trust = trust_[mesh_.round[a]];
+                samples.push_back(s);
             }
         return samples;
-    }
-
-    static void fit(std::vector<Sample>& samples, LocalSolid& solid) {
-        for (int f = 0; f < solid.count; ++f) {
-            Face& face = solid.face[f];
-            Vec3 point(0, 0, 0), normal(0, 0, 0);
-            double weight = 0;
-            for (const Sample& s : samples) {
-                if (s.face != f) continue;
-                point += s.point * s.weight;
-                normal += s.normal * s.weight;
-                weight += s.weight;
-            }
-            face.weight = weight;
-            if (!(weight > 0)) continue;
-            face.point = point / weight;
-            face.normal = normal.normalized();
-        }
-    }
-
-    /// Splits the samples into two or three faces; false where the surface is smooth or round.
-    bool find_faces(std::vector<Sample>& samples, LocalSolid& solid) const {
-        if (samples.size() < 3) return false;
-        int seed[3] = {0, 0, -1};
-        double least = 1;
-        for (std::size_t a = 0; a < samples.size(); ++a)
-            for (std::size_t b = a + 1; b < samples.size(); ++b) {
-                const double cosine = samples[a].normal.dot(samples[b].normal);
-                if (cosine < least - 1e-9) {
-                    least = cosine;
-                    seed[0] = static_cast<int>(a);
-                    seed[1] = static_cast<int>(b);
-                }
-            }
-        if (least > edge_cosine) return false;
-        double best = third_cosine;
-        for (std::size_t c = 0; c < samples.size(); ++c) {
-            const double cosine = std::max(samples[c].normal.dot(samples[seed[0]].normal),
-                                           samples[c].normal.dot(samples[seed[1]].normal));
-            if (cosine < best - 1e-9) {
-                best = cosine;
-                seed[2] = static_cast<int>(c);
-            }
-        }
-        // A curved face may look like two: then try without the third.
-        return (seed[2] >= 0 && split(samples, seed, 3, solid)) || split(samples, seed, 2, solid);
-    }
-
-    /// Weights against what disturbs a fit: the other face, within the reach of its bend in phi,
-    /// and the curvature of the edge.
-    static void weigh(std::vector<Sample>& samples, const LocalSolid& solid) {
-        const Vec3 along = solid.face[0].normal.cross(solid.face[1].normal).normalized();
-        for (Sample& s : samples) {
-            double away = undisturbed;
-            for (int f = 0; f < solid.count; ++f)
-                if (f != s.face) away = std::min(away, std::fabs(solid.face[f].value(s.point)));
-            s.weight = std::pow(away / undisturbed, 8);
-            if (solid.count > 2) continue;
-            const double aside = s.point.dot(along) / lateral;
-            s.weight *= std::exp(-0.5 * aside * aside);
-        }
-    }
-
-    bool split(std::vector<Sample>& samples, const int (&seed)[3], int count,
-               LocalSolid& solid) const {
-        solid.count = count;
-        for (Sample& s : samples) {
-            double nearest = -2;
-            s.weight = 1;
-            for (int f = 0; f < count; ++f) {
-                const double cosine = s.normal.dot(samples[seed[f]].normal);
-                if (cosine > nearest) {
-                    nearest = cosine;
-                    s.face = f;
-                }
-            }
-        }
-        fit(samples, solid);
-        for (int round = 0; round < 2; ++round) {
-            weigh(samples, solid);
-            fit(samples, solid);
-        }
-        return distinct(samples, solid);
-    }
-
-    bool distinct(const std::vector<Sample>& samples, const LocalSolid& solid) const {
-        double angle = 4;
-        for (int a = 0; a < solid.count; ++a)
-            for (int b = 0; b < a; ++b)
-                angle = std::min(
-                    angle,
-                    std::acos(std::clamp(solid.face[a].normal.dot(solid.face[b].normal), -1., 1.)));
-        if (angle < std::acos(edge_cosine)) return false;
-        for (const Sample& s : samples) {
-            const double cosine = s.normal.dot(solid.face[s.face].normal);
-            if (s.weight > 0.1 && cosine < std::cos(demands_.largest_spread * angle)) return false;
-        }
-        for (int f = 0; f < solid.count; ++f)
-            if (!(solid.face[f].weight > demands_.least_weight)) return false;
-        return true;
     }
 
     /// Crossings of the cell's edges with the fitted solid; `touched` tells which faces they lie
@@ -314,7 +169,8 @@ private:
             for (int f = 0; f < solid.count; ++f) {
                 const double va = solid.face[f].value(a), vb = solid.face[f].value(b);
                 if (std::fabs(va - vb) < 1e-9) continue;
-                const double t = va / (va - vb);
+                double t = va / (va - vb);
+                t -= solid.face[f].value(a + (b - a) * t) / (vb - va); // it may be curved
                 if (t < -1.5 || t > 2.5 ||
                     (!cell.on_side[0] && !cell.on_side[1] && (t < -0.1 || t > 1.1)))
                     continue;
@@ -335,12 +191,22 @@ private:
     /// The point nearest to `start` on all touched faces, staying on the side planes.
     static Vec3 meet(const Vec3& start, const LocalSolid& solid, const bool (&touched)[3],
                      const std::array<bool, 3>& on_side) {
+        Vec3 base = start;
+        for (int round = 0; round < 3; ++round)
+            base = meet_tangents(start, base, solid, touched, on_side);
+        return base;
+    }
+
+    /// The same on the planes that touch the faces next to `base`.
+    static Vec3 meet_tangents(const Vec3& start, const Vec3& base, const LocalSolid& solid,
+                              const bool (&touched)[3], const std::array<bool, 3>& on_side) {
         Vec3 p = start;
         std::array<Vec3, 3> basis; // orthonormal, by Gram and Schmidt
         int size = 0;
         for (int f = 0; f < solid.count; ++f) {
             if (!touched[f]) continue;
-            Vec3 n = solid.face[f].normal;
+            const Vec3 tangent = solid.face[f].normal_at(base);
+            Vec3 n = tangent;
             for (int axis = 0; axis < 2; ++axis)
                 if (on_side[axis]) n[axis] = 0;
             for (int b = 0; b < size; ++b)
@@ -349,7 +215,8 @@ private:
             if (length < 0.15) continue; // nearly parallel: adds no information
             n /= length;
             // Moving along n leaves the earlier faces; step until face f is met.
-            p -= n * (solid.face[f].value(p) / n.dot(solid.face[f].normal));
+            const double value = solid.face[f].value(base) + tangent.dot(p - base);
+            p -= n * (value / n.dot(tangent));
             basis[size++] = n;
         }
         return p;
@@ -357,7 +224,7 @@ private:
 
     Vec3 settle(int v, std::vector<int>& stamp) const {
         const Vec3 here = mesh_.position[v];
-        std::vector<Sample> samples = samples_near(v, stamp);
+        std::vector<FaceSample> samples = samples_near(v, stamp);
         LocalSolid solid;
         if (!find_faces(samples, solid)) return here;
         const CrossedCell cell = crossed_cell(band_, mesh_, v);
@@ -375,20 +242,17 @@ private:
         return q;
     }
 
-    const Demands demands_;
     const Band& band_;
     DualMesh& mesh_;
     double h_;
-    bool periodic_;
-    std::vector<Vec3> centre_, normal_;
-    std::vector<int> first_, round_;
-    std::vector<char> flat_, clean_, sharp_;
+    std::vector<double> turn_, trust_; ///< least cosine round a vertex; of a quad for a face
+    std::vector<char> clean_, sharp_;
 };
 
 } // namespace
 
-void sharpen(const Band& band, DualMesh& mesh, Edges edges) {
-    if (!mesh.quads.empty()) Sharpener(band, mesh, edges == Edges::drawn ? drawn : etched).run();
+void sharpen(const Band& band, DualMesh& mesh) {
+    if (!mesh.quads.empty()) Sharpener(band, mesh).run();
 }
 
 } // namespace rille::geometry

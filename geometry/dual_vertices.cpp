@@ -135,13 +135,131 @@ CrossedCell crossed_cell(const Band& band, const DualMesh& mesh, int vertex) {
     return moved < 0.6 * band.domain.spacing ? to_side : free;
 }
 
+namespace {
+
+/// Part of the grid edge from the node to its upper neighbour along `axis` that lies before the
+/// contour: phi linear, bent by what the second differences at both ends agree on.
+double crossing_share(const Band& band, int node, int axis) {
+    const int to = band.neighbour[node][2 * axis + 1];
+    const int before = band.neighbour[node][2 * axis], after = band.neighbour[to][2 * axis + 1];
+    const double a = band.phi[node], b = band.phi[to];
+    double t = a / (a - b);
+    if (before < 0 || after < 0) return t;
+    double bend = minmod(band.phi[before] - 2 * a + b, a - 2 * b + band.phi[after]);
+    if (bend == 0) return t;
+    bend = std::clamp(bend, -std::fabs(b - a), std::fabs(b - a));
+    // a + (b - a) t - bend t (1 - t) / 2 = 0: exactly one root lies between nodes of unlike sign.
+    const double half = 0.5 * (b - a - 0.5 * bend);
+    const double root = std::sqrt(std::max(0.0, half * half - 0.5 * bend * a));
+    t = -a / (half + std::copysign(root, b - a));
+    return std::clamp(t, 0.0, 1.0);
+}
+
+void find_crossings(const Band& band, DualMesh& mesh) {
+    mesh.crossing.resize(mesh.quads.size());
+    over_ranges(mesh.quads.size(), 4096, [&](std::size_t first, std::size_t last) {
+        for (std::size_t n = first; n < last; ++n) {
+            const DualQuad& q = mesh.quads[n];
+            const auto& c = band.cells[q.node];
+            Vec3 p = band.domain.node(c.i, c.j, c.k);
+            p[q.axis] += band.domain.spacing * crossing_share(band, q.node, q.axis);
+            mesh.crossing[n] = p;
+        }
+    });
+}
+
+void link(DualMesh& mesh) {
+    const std::size_t vertices = mesh.cell_of_vertex.size();
+    mesh.first.assign(vertices + 1, 0);
+    for (const DualQuad& q : mesh.quads)
+        for (int v : q.vertex)
+            ++mesh.first[v + 1];
+    for (std::size_t v = 1; v < mesh.first.size(); ++v)
+        mesh.first[v] += mesh.first[v - 1];
+    mesh.round.resize(mesh.first.back());
+    std::vector<int> fill(mesh.first.begin(), mesh.first.end() - 1);
+    for (std::size_t n = 0; n < mesh.quads.size(); ++n)
+        for (int v : mesh.quads[n].vertex)
+            mesh.round[fill[v]++] = static_cast<int>(n);
+}
+
+/// Whether the cell ends on a side of the period or reaches over it.
+bool at_side(const Band& band, const DualCell& cell) {
+    const auto& c = band.cells[cell.node];
+    return cell.low[0] || cell.low[1] || c.i == band.domain.cells_x - 1 ||
+           c.j == band.domain.cells_y - 1;
+}
+
+void measure_normals(const Band& band, DualMesh& mesh) {
+    mesh.normal.resize(mesh.quads.size());
+    const double least = 1e-12 * band.domain.spacing * band.domain.spacing;
+    over_ranges(mesh.quads.size(), 4096, [&](std::size_t first, std::size_t last) {
+        for (std::size_t n = first; n < last; ++n) {
+            const Vec3 cross = across(band.domain, mesh, mesh.quads[n]);
+            const double length = cross.length();
+            mesh.normal[n] = length > least ? cross / length : Vec3(0, 0, 0);
+        }
+    });
+}
+
+/// How far the mean of crossings lies below a curved surface through them [nm, along the mean
+/// normal]: half the mean distance of the mean from their tangent planes.
+Vec3 lift(const Band& band, const DualMesh& mesh, int v) {
+    constexpr double most = 0.15; // [cells]
+    Vec3 mean(0, 0, 0);
+    double height = 0;
+    int count = 0;
+    for (int a = mesh.first[v]; a < mesh.first[v + 1]; ++a) {
+        const Vec3& n = mesh.normal[mesh.round[a]];
+        height += n.dot(between(band.domain, mesh.position[v], mesh.crossing[mesh.round[a]]));
+        mean += n;
+        ++count;
+    }
+    const double length = mean.length();
+    if (length < 0.5 * count) return Vec3(0, 0, 0);
+    const double limit = most * band.domain.spacing;
+    return mean * (std::clamp(0.5 * height / count, -limit, limit) / length);
+}
+
+} // namespace
+
+Vec3 across(const Domain& domain, const DualMesh& mesh, const DualQuad& q) {
+    Vec3 p[4];
+    for (int m = 0; m < 4; ++m) {
+        p[m] = mesh.position[q.vertex[m]];
+        if (q.image[m] & 1) p[m].x -= domain.width_x();
+        if (q.image[m] & 2) p[m].y -= domain.width_y();
+    }
+    return (p[2] - p[0]).cross(p[3] - p[1]);
+}
+
 void place_vertices(const Band& band, DualMesh& mesh) {
+    find_crossings(band, mesh);
+    link(mesh);
     const std::size_t size = mesh.cell_of_vertex.size();
     mesh.position.resize(size);
+    std::vector<char> side(size);
     over_ranges(size, 4096, [&](std::size_t first, std::size_t last) {
-        for (std::size_t n = first; n < last; ++n)
-            mesh.position[n] = crossed_cell(band, mesh, static_cast<int>(n)).mean();
+        for (std::size_t v = first; v < last; ++v) {
+            const DualCell& cell = mesh.cells[mesh.cell_of_vertex[v]];
+            side[v] = at_side(band, cell);
+            if (side[v]) {
+                mesh.position[v] = crossed_cell(band, mesh, static_cast<int>(v)).mean();
+                continue;
+            }
+            Vec3 sum(0, 0, 0);
+            for (int a = mesh.first[v]; a < mesh.first[v + 1]; ++a)
+                sum += mesh.crossing[mesh.round[a]];
+            mesh.position[v] = sum / (mesh.first[v + 1] - mesh.first[v]);
+        }
     });
+    measure_normals(band, mesh);
+    std::vector<Vec3> lifted(size);
+    over_ranges(size, 4096, [&](std::size_t first, std::size_t last) {
+        for (std::size_t v = first; v < last; ++v)
+            lifted[v] = side[v] ? mesh.position[v] : mesh.position[v] + lift(band, mesh, v);
+    });
+    mesh.position = std::move(lifted);
 }
 
 } // namespace rille::geometry

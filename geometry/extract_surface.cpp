@@ -3,8 +3,8 @@
 
 namespace rille::geometry {
 
-Surface extract_surface(const Band& band, Edges edges) {
-    return band.domain.extruded() ? extract_extruded(band) : extract_full(band, edges);
+Surface extract_surface(const Band& band) {
+    return band.domain.extruded() ? extract_extruded(band) : extract_full(band);
 }
 
 void add_element(Surface& s, const std::array<int, 4>& corners, int chain) {

@@ -5,7 +5,7 @@
 namespace rille::geometry {
 
 Surface extract_surface(const Front& front) {
-    return extract_surface(front.band(), Edges::etched);
+    return extract_surface(front.band());
 }
 
 } // namespace rille::geometry

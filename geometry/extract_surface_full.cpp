@@ -133,10 +133,10 @@ void number_chains(const DualMesh& mesh, const std::vector<int>& origin, const D
 
 } // namespace
 
-Surface extract_full(const Band& band, Edges edges) {
+Surface extract_full(const Band& band) {
     DualMesh mesh = dual_topology(band);
     place_vertices(band, mesh);
-    sharpen(band, mesh, edges);
+    sharpen(band, mesh);
     Surface s;
     add_vertices(band, mesh, s);
     std::vector<int> origin(mesh.quads.size());

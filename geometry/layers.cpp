@@ -14,6 +14,8 @@ constexpr double just_inside =
     1e-9; ///< [cells] a point on an interface counts for the solid's side
 constexpr double corner_inside = 0.2; ///< [cells] corners of the contour are known no better
 constexpr double thin_share = 0.05;   ///< of the thickness of a thin film
+constexpr double sliver = 0.1;        ///< [cells] what edges of full surfaces are known to
+constexpr double sliver_share = 0.01; ///< of the thickness of a film: no sliver in a thin one
 } // namespace
 
 double walk(const RateTables& tables, const Layers& layers, double angle, double time,
@@ -69,8 +71,23 @@ int LayerFinder::film_inside(const Foot& foot) const {
     return stack_.film_at(foot.point.z + step_inside(foot) * foot.inward.z);
 }
 
+Foot LayerFinder::past_sliver(int element, Foot foot) const {
+    if (band_.domain.extruded() || foot.corner) return foot;
+    const int film = film_inside(foot);
+    const Film& own = stack_.films()[film];
+    const double depth = stack_.distance_to_interface(
+        foot.point + foot.inward * just_inside * band_.domain.spacing, foot.inward);
+    const double h = band_.domain.spacing;
+    if (!(depth < std::min(sliver * h, sliver_share * (own.top - own.bottom)))) return foot;
+    Foot beyond = foot;
+    beyond.point += foot.inward * (depth + 2 * just_inside * h);
+    const double angle = tilt_of(false, -foot.inward.x, -foot.inward.y, -foot.inward.z).angle;
+    const int row = row_of_film(element, film), next = row_of_film(element, film_inside(beyond));
+    return tables_.rate(row, angle) < 0.5 * tables_.rate(next, angle) ? beyond : foot;
+}
+
 int LayerFinder::row_below(int element, const Foot& foot) const {
-    return row_of_film(element, film_inside(foot));
+    return row_of_film(element, film_inside(past_sliver(element, foot)));
 }
 
 double LayerFinder::grown(int element, Layers& out) const {
@@ -105,7 +122,8 @@ void LayerFinder::below(int element, const Foot& foot, double reach, Layers& out
     out.count = 0;
     const double films = grown(element, out);
     if (films > reach) return;
-    stack_below(element, {foot.point + foot.inward * films, foot.inward, foot.corner},
+    stack_below(element,
+                past_sliver(element, {foot.point + foot.inward * films, foot.inward, foot.corner}),
                 reach - films, out);
 }
 
@@ -159,7 +177,8 @@ unsigned LayerFinder::slow_sides(std::size_t cell, const double* phi, int elemen
 unsigned LayerFinder::unseen_sides(std::size_t cell, const double* phi, int element,
                                    const Foot& foot, double angle) const {
     const int own = stack_.film_at((band_.cells[cell].k + 0.5) * band_.domain.spacing);
-    return film_inside(foot) == own ? slow_sides(cell, phi, element, angle) : 0;
+    return film_inside(past_sliver(element, foot)) == own ? slow_sides(cell, phi, element, angle)
+                                                          : 0;
 }
 
 bool LayerFinder::pinned(std::size_t cell, const double* phi, int element, double angle) const {
@@ -176,7 +195,8 @@ void LayerFinder::for_cell(std::size_t cell, const double* phi, double steep, in
     out.count = 0;
     const double films = grown(element, out);
     if (films > reach) return;
-    const Foot base{foot.point + foot.inward * films, foot.inward, foot.corner};
+    const Foot base =
+        past_sliver(element, {foot.point + foot.inward * films, foot.inward, foot.corner});
     const int from = film_inside(base);
     int after = -1;
     const double bound = limit(cell, phi, steep, from, after) - films;

@@ -73,6 +73,9 @@ private:
     unsigned slow_sides(std::size_t cell, const double* phi, int element, double angle) const;
     void stack_below(int element, Foot foot, double reach, Layers& out) const;
     double step_inside(const Foot&) const;
+    /// full: a foot less than the uncertainty of an edge before the end of a slow film lies on the
+    /// film behind it: a floor at the foot of a mask belongs to the film.
+    Foot past_sliver(int element, Foot) const;
     int film_inside(const Foot&) const;
     int row_of_film(int element, int film) const {
         return rates_.row(element, stack_.films()[film].material);

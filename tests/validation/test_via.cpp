@@ -60,9 +60,7 @@ double removed_volume(const geometry::Surface& s) {
 
 // Oracle: a vertical beam deepens the via at flux * yield / density and leaves the walls alone.
 // Source: definition.
-// Tolerance: depth 0.05 cell; no lost ray; a depth 2 % off must fail. The goal for CDs is 0.25 cell
-// and is not met: 0.29 cell on the round via and 0.43 on the ellipse (axis of 14 cells, under the
-// lip of the mask) were measured, and the checks stand just above, at 0.3 and 0.5.
+// Tolerance: depth 0.05 cell; CDs 0.25 cell; no lost ray; a depth 2 % off must fail.
 TEST_CASE("a vertical beam etches a via straight down", "[validation][via]") {
     struct Shape {
         double x, y;
@@ -77,7 +75,7 @@ TEST_CASE("a vertical beam etches a via straight down", "[validation][via]") {
         const auto floor = geometry::floor_of(t.c.domain, surface, site);
         REQUIRE(floor);
         const double cell = t.c.domain.spacing, depth = -floor->centre.value;
-        const double near = (shape.x == shape.y ? 0.3 : 0.5) * cell;
+        const double near = 0.25 * cell;
         CAPTURE(shape.x, shape.y, depth);
         CHECK(std::fabs(depth - 24.3) < 0.05 * cell);
         CHECK(std::fabs(depth - 1.02 * 24.3) > 0.05 * cell);
@@ -98,9 +96,8 @@ TEST_CASE("a vertical beam etches a via straight down", "[validation][via]") {
 // Oracle: isotropic etching by distance t under a round opening of radius R removes
 //         pi R^2 t + pi^2 R t^2 / 2 + 2 pi t^3 / 3.
 // Source: parallel body of a disk, derived here.
-// Tolerance: at 16 cells across and 3 cells of depth 27 % of the volume is missing (measured):
-// round edges are contoured without their sharp foot, which holds the undercut of the mask back.
-// The goal is 2 %; the check bounds what is missing from below. 10 % less must fail.
+// Tolerance: 16 cells across and 3 cells deep, 5 % of the volume (2 % is the goal). A lateral reach
+// that lags by half a cell must fail.
 TEST_CASE("isotropic etching undercuts a round opening", "[validation][via]") {
     TrenchCase t = via_case(96, 2, 32, 32);
     const int radical = t.add_neutral("F", 5e5); // so much that the etch uses none up
@@ -119,7 +116,7 @@ TEST_CASE("isotropic etching undercuts a round opening", "[validation][via]") {
     CAPTURE(removed, volume(d));
     WARN("removed " << 100 * removed / volume(d)
                     << " % of the closed form; the goal is 98 to 102 %");
-    CHECK(removed / volume(d) > 0.70);
+    CHECK(removed / volume(d) > 0.95);
     CHECK(removed / volume(d) < 1.02);
-    CHECK_FALSE(0.9 * removed / volume(d) > 0.70);
+    CHECK_FALSE(volume(d - 1) / volume(d) > 0.95);
 }
