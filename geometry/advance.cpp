@@ -26,11 +26,12 @@ double Advance::change(const Slopes& s, const RowPair& row, Speed& speed) const 
         return speed.rate * steep;
     }
     const double gx = s.mean(0), gy = s.mean(1), gz = s.mean(2);
-    const Tilt mean = tilt_of(extruded_, gx, gy, gz);
-    speed.rate = tables_.rate(row, mean.angle);
+    const double across = extruded_ ? gx : std::sqrt(gx * gx + gy * gy);
+    const Tilt mean = tables_.tilt(across, gz);
+    speed.rate = tables_.rate(row, mean);
     const std::array<double, 3> a = dissipation(tables_, row, extruded_, s, mean);
     speed.waves = a[0] + a[1] + a[2];
-    double sum = speed.rate * std::sqrt(gx * gx + gy * gy + gz * gz);
+    double sum = speed.rate * std::sqrt(across * across + gz * gz);
     for (int axis = 0; axis < 3; ++axis)
         sum += 0.5 * a[axis] * (s.plus[axis] - s.minus[axis]);
     return sum;

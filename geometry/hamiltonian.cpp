@@ -27,7 +27,8 @@ double most_magnitude(double a, double b) {
     return std::max(std::fabs(a), std::fabs(b));
 }
 
-Box box_of(bool extruded, const Slopes& s) {
+/// `low` and `high` are the least and the largest magnitude along each axis.
+Box box_of(bool extruded, const Slopes& s, const double* low, const double* high) {
     Box b;
     b.z_low = std::min(s.minus[2], s.plus[2]);
     b.z_high = std::max(s.minus[2], s.plus[2]);
@@ -36,24 +37,35 @@ Box box_of(bool extruded, const Slopes& s) {
         b.h_high = std::max(s.minus[0], s.plus[0]);
         return b;
     }
-    const double x0 = least_magnitude(s.minus[0], s.plus[0]);
-    const double y0 = least_magnitude(s.minus[1], s.plus[1]);
-    const double x1 = most_magnitude(s.minus[0], s.plus[0]);
-    const double y1 = most_magnitude(s.minus[1], s.plus[1]);
-    b.h_low = std::sqrt(x0 * x0 + y0 * y0);
-    b.h_high = std::sqrt(x1 * x1 + y1 * y1);
+    b.h_low = std::sqrt(low[0] * low[0] + low[1] * low[1]);
+    b.h_high = std::sqrt(high[0] * high[0] + high[1] * high[1]);
     return b;
 }
 
-Tilt tilt(double horizontal, double vertical) {
+Tilt exact_tilt(double horizontal, double vertical) {
     const double length = std::sqrt(horizontal * horizontal + vertical * vertical);
     if (length == 0) return {};
-    return {std::atan2(horizontal, vertical), horizontal / length, vertical / length};
+    return {std::atan2(horizontal, vertical), horizontal / length, vertical / length, -1};
 }
 
 Tilt turned(const Tilt& t, double by) {
     const double c = 1 - 0.5 * by * by;
-    return {t.angle + by, t.sine * c + t.cosine * by, t.cosine * c - t.sine * by};
+    return {t.angle + by, t.sine * c + t.cosine * by, t.cosine * c - t.sine * by, t.segment};
+}
+
+/// Runs from 0 to 2 as the angle from +z towards the horizontal runs from 0 to pi, in its place;
+/// horizontal >= 0.
+double turn_of(double horizontal, double vertical) {
+    const double sum = horizontal + std::fabs(vertical);
+    return vertical < 0 ? 1 - vertical / sum : horizontal / sum;
+}
+
+constexpr int turn_bins = 128; ///< none wider than 1/32 rad
+
+/// arcsin(x) by its series, exact to rounding for |x| < 1/32.
+double short_arcsine(double x) {
+    const double q = x * x;
+    return x + x * q * (1.0 / 6 + q * (3.0 / 40 + q * (15.0 / 336 + q * (105.0 / 3456))));
 }
 
 WaveSpeed most(const WaveSpeed& a, const WaveSpeed& b) {
@@ -68,17 +80,17 @@ WaveSpeed over_box(const RateTables& tables, int row, bool extruded, const Box& 
     const double square = wide * wide + high * high;
     const double h = 0.5 * (b.h_low + b.h_high), z = 0.5 * (b.z_low + b.z_high);
     const double middle = h * h + z * z;
-    const Tilt full_low{lowest, 0, extruded ? -1.0 : 1.0}, full_high{pi, 0, -1};
     if (square < narrow * narrow * middle) {
         // The mean slopes lie in the box, so a cone about them as wide as its diagonal holds it.
         const double spread = 1.1 * std::sqrt(square / middle);
         const Tilt low = turned(mean, -spread), up = turned(mean, spread);
         if (low.angle >= lowest && up.angle <= pi) return tables.wave_speed(row, low, up);
     }
+    const Tilt full_low{lowest, 0, extruded ? -1.0 : 1.0, -1}, full_high{pi, 0, -1, -1};
     const bool holds_origin = b.h_low <= 0 && b.h_high >= 0 && b.z_low <= 0 && b.z_high >= 0;
     if (holds_origin) return tables.wave_speed(row, full_low, full_high);
-    Tilt corner[4] = {tilt(b.h_low, b.z_low), tilt(b.h_low, b.z_high), tilt(b.h_high, b.z_low),
-                      tilt(b.h_high, b.z_high)};
+    Tilt corner[4] = {exact_tilt(b.h_low, b.z_low), exact_tilt(b.h_low, b.z_high),
+                      exact_tilt(b.h_high, b.z_low), exact_tilt(b.h_high, b.z_high)};
     std::sort(corner, corner + 4, [](const Tilt& a, const Tilt& c) { return a.angle < c.angle; });
     const bool wraps = extruded && b.h_low < 0 && b.h_high > 0 && b.z_high < 0;
     if (!wraps) return tables.wave_speed(row, corner[0], corner[3]);
@@ -111,7 +123,7 @@ std::array<double, 3> of_row(const RateTables& tables, int row, bool extruded, c
                 rate * share(high[1], low[0] * low[0] + low[2] * low[2]),
                 rate * share(high[2], low[0] * low[0] + low[1] * low[1])};
     }
-    const WaveSpeed w = over_box(tables, row, extruded, box_of(extruded, s), mean);
+    const WaveSpeed w = over_box(tables, row, extruded, box_of(extruded, s, low, high), mean);
     if (extruded) return {w.horizontal, 0, w.vertical};
     return {w.horizontal * share(high[0], low[1] * low[1]),
             w.horizontal * share(high[1], low[0] * low[0]), w.vertical};
@@ -120,7 +132,7 @@ std::array<double, 3> of_row(const RateTables& tables, int row, bool extruded, c
 } // namespace
 
 Tilt tilt_of(bool extruded, double gx, double gy, double gz) {
-    return tilt(extruded ? gx : std::sqrt(gx * gx + gy * gy), gz);
+    return exact_tilt(extruded ? gx : std::sqrt(gx * gx + gy * gy), gz);
 }
 
 RateTables::RateTables(const NormalRates& rates) : rates_(rates) {
@@ -140,6 +152,10 @@ RateTables::RateTables(const NormalRates& rates) : rates_(rates) {
         while (s + 2 < static_cast<int>(n) && angle[s + 1] <= start)
             ++s;
         bin_.push_back(s);
+    }
+    for (int b = 0; b <= turn_bins; ++b) {
+        const double turn = 2.0 * b / turn_bins;
+        marks_.push_back(exact_tilt(turn < 1 ? turn : 2 - turn, 1 - turn));
     }
     constant_.resize(rows);
     for_ranges(rows, [&](std::size_t begin, std::size_t end) {
@@ -161,10 +177,38 @@ int RateTables::segment(double angle) const {
     return s;
 }
 
+int RateTables::segment(const Tilt& t) const {
+    if (t.segment < 0) return segment(t.angle);
+    const int last = static_cast<int>(rates_.angles.size()) - 2;
+    int s = t.segment;
+    while (s < last && t.angle > rates_.angles[s + 1])
+        ++s;
+    while (s > 0 && t.angle < rates_.angles[s])
+        --s;
+    return s;
+}
+
+Tilt RateTables::tilt(double horizontal, double vertical) const {
+    Tilt t;
+    const double across = std::fabs(horizontal);
+    const double length = std::sqrt(horizontal * horizontal + vertical * vertical);
+    if (length > 0) {
+        const int bin = static_cast<int>(turn_of(across, vertical) * (0.5 * turn_bins));
+        const Tilt& mark = marks_[std::clamp(bin, 0, turn_bins)];
+        t.cosine = vertical / length;
+        t.sine = across / length;
+        const double beyond = t.sine * mark.cosine - t.cosine * mark.sine;
+        t.angle = std::copysign(mark.angle + short_arcsine(beyond), horizontal);
+        t.sine = std::copysign(t.sine, horizontal);
+    }
+    t.segment = segment(t.angle);
+    return t;
+}
+
 WaveSpeed RateTables::wave_speed(int row, const Tilt& low, const Tilt& high) const {
     // H = R(t) rho with slopes (rho sin t, rho cos t): dH/d(horizontal) = R sin t + R' cos t and
     // dH/dz = R cos t - R' sin t; between nodes they are extremal where cos t or sin t vanishes.
-    const int first = segment(low.angle), last = segment(high.angle);
+    const int first = segment(low), last = segment(high);
     const double* v = values(row);
     WaveSpeed out;
     for (int s = first; s <= last; ++s) {

@@ -13,6 +13,7 @@ namespace rille::geometry {
 /// A normal as the rate tables see it: the angle with its sine and cosine.
 struct Tilt {
     double angle = 0, sine = 0, cosine = 1;
+    int segment = -1; ///< of the rate tables, where the angle lies or near it; -1: not known
 };
 /// extruded: angle atan2(g.x, g.z); full: angle between g and +z.
 Tilt tilt_of(bool extruded, double gx, double gy, double gz);
@@ -45,6 +46,19 @@ public:
         const double own = rate(pair.row, angle);
         return pair.share > 0 ? own + pair.share * (rate(pair.other, angle) - own) : own;
     }
+    /// The tilt of a slope, as tilt_of; without calling an arc function where the tables are dense.
+    Tilt tilt(double horizontal, double vertical) const;
+    /// Rate at a tilt that came from `tilt`.
+    double rate(const RowPair& pair, const Tilt& t) const {
+        const double part = (t.angle - rates_.angles[t.segment]) * inverse_width_[t.segment];
+        const auto read = [&](int row) {
+            if (row < 0) return 0.0;
+            const double* v = values(row) + t.segment;
+            return v[0] + (v[1] - v[0]) * part;
+        };
+        const double own = read(pair.row);
+        return pair.share > 0 ? own + pair.share * (read(pair.other) - own) : own;
+    }
     bool constant(int row) const { return row < 0 || constant_[row]; }
     /// Whether a row has any rate but 0.
     bool moves(int row) const { return row >= 0 && (!constant_[row] || values(row)[0] != 0); }
@@ -57,10 +71,12 @@ public:
 
 private:
     int segment(double angle) const;
+    int segment(const Tilt& t) const;
     const double* values(int row) const {
         return rates_.table.data() + static_cast<std::size_t>(row) * rates_.angles.size();
     }
     const NormalRates& rates_;
+    std::vector<Tilt> marks_; ///< where each bin of turns starts
     std::vector<int> bin_;
     double bins_per_radian_ = 0;
     std::vector<double> inverse_width_, sine_, cosine_;
