@@ -61,8 +61,8 @@ double removed_volume(const geometry::Surface& s) {
 // Oracle: a vertical beam deepens the via at flux * yield / density and leaves the walls alone.
 // Source: definition.
 // Tolerance: depth 0.05 cell; no lost ray; a depth 2 % off must fail. The goal for CDs is 0.25 cell
-// and is not met: 0.29 cell on the round via and 0.43 on the ellipse (axis of 14 cells, under the lip
-// of the mask) were measured, and the checks stand just above, at 0.3 and 0.5.
+// and is not met: 0.29 cell on the round via and 0.43 on the ellipse (axis of 14 cells, under the
+// lip of the mask) were measured, and the checks stand just above, at 0.3 and 0.5.
 TEST_CASE("a vertical beam etches a via straight down", "[validation][via]") {
     struct Shape {
         double x, y;
