@@ -33,13 +33,6 @@ std::pair<const int*, const int*> ColumnIndex::column(const Band& band, int i, i
     return {cell_.data() + first_[c], cell_.data() + first_[c + 1]};
 }
 
-int ColumnIndex::find(const Band& band, int i, int j, int k) const {
-    const auto [begin, end] = column(band, i, j);
-    const int* at = std::lower_bound(begin, end, k,
-                                     [&](int c, int wanted) { return band.cells[c].k < wanted; });
-    return at != end && band.cells[*at].k == k ? *at : -1;
-}
-
 double ColumnIndex::phi(const Band& band, int i, int j, int k) const {
     const auto [begin, end] = column(band, i, j);
     const double beyond = band_half_width * band.domain.spacing;
@@ -48,6 +41,25 @@ double ColumnIndex::phi(const Band& band, int i, int j, int k) const {
     if (at == end) return beyond;
     if (band.cells[*at].k == k) return std::clamp(band.phi[*at], -beyond, beyond);
     return at == begin || band.phi[*at] < 0 ? -beyond : beyond;
+}
+
+RowIndex::RowIndex(const Band& band)
+    : band_(band), ny_(band.domain.cells_y), k_low_(band.cells.front().k),
+      k_high_(band.cells.back().k) {
+    first_.assign(static_cast<std::size_t>(k_high_ - k_low_ + 1) * ny_ + 1, 0);
+    for (const Band::Cell& c : band.cells)
+        ++first_[row(c.k, c.j) + 1];
+    for (std::size_t r = 1; r < first_.size(); ++r)
+        first_[r] += first_[r - 1];
+}
+
+int RowIndex::find(int i, int j, int k) const {
+    if (k < k_low_ || k > k_high_) return -1;
+    const std::size_t r = row(k, j);
+    const auto begin = band_.cells.begin() + first_[r], end = band_.cells.begin() + first_[r + 1];
+    const auto at = std::lower_bound(begin, end, i,
+                                     [](const Band::Cell& c, int wanted) { return c.i < wanted; });
+    return at != end && at->i == i ? static_cast<int>(at - band_.cells.begin()) : -1;
 }
 
 std::size_t ColumnIndex::memory_bytes() const {

@@ -34,27 +34,11 @@ bool has_gap(const std::array<int, 6>& next, bool flat) {
     return (next[0] | next[1] | next[4] | next[5]) < 0 || (!flat && (next[2] | next[3]) < 0);
 }
 
-/// Where each row (k, j) starts in the sorted list of cells.
-struct Rows {
-    explicit Rows(const Band& band) : ny(band.domain.cells_y) {
-        k_low = band.cells.front().k;
-        k_high = band.cells.back().k;
-        first.assign(static_cast<std::size_t>(k_high - k_low + 1) * ny + 1, 0);
-        for (const Band::Cell& c : band.cells)
-            ++first[row(c.k, c.j) + 1];
-        for (std::size_t r = 1; r < first.size(); ++r)
-            first[r] += first[r - 1];
-    }
-    std::size_t row(int k, int j) const { return static_cast<std::size_t>(k - k_low) * ny + j; }
-    int ny, k_low, k_high;
-    std::vector<int> first;
-};
-
 /// For each cell of row `from`, the cell with the same i in row `to`, written to side `side`.
-void join_rows(Band& band, const Rows& rows, std::size_t from, std::size_t to, int side) {
-    int t = rows.first[to];
-    const int t_end = rows.first[to + 1];
-    for (int c = rows.first[from]; c < rows.first[from + 1]; ++c) {
+void join_rows(Band& band, const RowIndex& rows, std::size_t from, std::size_t to, int side) {
+    int t = rows.first(to);
+    const int t_end = rows.first(to + 1);
+    for (int c = rows.first(from); c < rows.first(from + 1); ++c) {
         const int i = band.cells[c].i;
         while (t < t_end && band.cells[t].i < i)
             ++t;
@@ -233,15 +217,25 @@ std::vector<int> insert(Band& band, std::vector<char>& beside, const std::vector
 /// chains are long.
 void solve(Band& band, const std::vector<int>& added, double unknown) {
     std::vector<double> value(added.size());
+    std::vector<char> news(band.size(), 0);
+    const auto hears_news = [&](int c) {
+        for (int side = 0; side < 6; ++side) {
+            const int n = band.neighbour[c][side], beyond = n < 0 ? -1 : band.neighbour[n][side];
+            if (n >= 0 && (news[n] || (beyond >= 0 && news[beyond]))) return true;
+        }
+        return false;
+    };
     for (int round = 0; round < 4; ++round) {
         for_ranges(added.size(), [&](std::size_t begin, std::size_t end) {
             for (std::size_t a = begin; a < end; ++a)
-                value[a] = eikonal(band, added[a], unknown);
+                value[a] = round == 0 || hears_news(added[a]) ? eikonal(band, added[a], unknown)
+                                                              : std::fabs(band.phi[added[a]]);
         });
         bool settled = true;
         for (std::size_t a = 0; a < added.size(); ++a) {
             double& phi = band.phi[added[a]];
-            settled = settled && std::fabs(phi) == value[a];
+            news[added[a]] = std::fabs(phi) != value[a];
+            settled = settled && !news[added[a]];
             phi = std::copysign(value[a], phi);
         }
         if (settled) break;
@@ -274,14 +268,15 @@ double largest_of_ranges(std::size_t n,
 
 void connect(Band& band) {
     RILLE_CHECK(!band.cells.empty(), "an empty band has no front");
-    const Rows rows(band);
+    const RowIndex rows(band);
     const Domain& d = band.domain;
+    const int ny = d.cells_y;
     band.neighbour.resize(band.size());
     const auto joined = [&](std::size_t begin, std::size_t end) {
         for (std::size_t r = begin; r < end; ++r) {
-            const int k = rows.k_low + static_cast<int>(r / rows.ny);
-            const int j = static_cast<int>(r % rows.ny);
-            const int first = rows.first[r], last = rows.first[r + 1];
+            const int k = rows.k_low() + static_cast<int>(r / ny);
+            const int j = static_cast<int>(r % ny);
+            const int first = rows.first(r), last = rows.first(r + 1);
             if (first == last) continue;
             connect_within_row(band, first, last);
             for (int up = 0; up < 2; ++up) {
@@ -291,9 +286,8 @@ void connect(Band& band) {
                     for (int c = first; c < last; ++c)
                         band.neighbour[c][side_y] = -1;
                 else
-                    join_rows(band, rows, r, rows.row(k, fold_index(to_j, rows.ny, d.sides)),
-                              side_y);
-                if (to_k >= rows.k_low && to_k <= rows.k_high)
+                    join_rows(band, rows, r, rows.row(k, fold_index(to_j, ny, d.sides)), side_y);
+                if (to_k >= rows.k_low() && to_k <= rows.k_high())
                     join_rows(band, rows, r, rows.row(to_k, j), side_z);
                 else
                     for (int c = first; c < last; ++c)
@@ -302,7 +296,7 @@ void connect(Band& band) {
         }
     };
     tbb::parallel_for(
-        tbb::blocked_range<std::size_t>(0, rows.first.size() - 1, 64),
+        tbb::blocked_range<std::size_t>(0, rows.rows(), 64),
         [&](const tbb::blocked_range<std::size_t>& r) { joined(r.begin(), r.end()); });
 }
 

@@ -46,16 +46,17 @@ struct Candidate {
 };
 
 /// What judging an element takes, side by side in memory: elements come in no order.
-struct Plate {
+struct alignas(64) Plate {
     Vec3 centre, normal; ///< [nm] where it has moved to; unit
     double size;         ///< [nm] reach from the centre: half a segment, more than a quad's disc
+    double disc;         ///< [nm^2] square of the radius of a quad's disc
 };
 
 /// From the nearest point of the disc that stands for a quad, to a point `apart` from its centre.
 Vec3 from_disc(const Vec3& apart, const Plate& plate) {
     const Vec3 across = apart - plate.normal * apart.dot(plate.normal);
-    const double square = across.dot(across), most = plate.size * plate.size * (1 / pi);
-    return square <= most ? apart - across : apart - across * std::sqrt(most / square);
+    const double square = across.dot(across);
+    return square <= plate.disc ? apart - across : apart - across * std::sqrt(plate.disc / square);
 }
 
 class Search {
@@ -114,30 +115,34 @@ private:
 void Search::pack() {
     plates_.resize(surface_.size());
     for_ranges(plates_.size(), [&](std::size_t begin, std::size_t end) {
-        for (std::size_t e = begin; e < end; ++e)
+        for (std::size_t e = begin; e < end; ++e) {
+            const double area = surface_.area[e];
+            const double size = domain_.extruded() ? 0.5 * area : std::sqrt(area);
             plates_[e] = {surface_.centre[e] + shift_of(static_cast<int>(e)), surface_.normal[e],
-                          domain_.extruded() ? 0.5 * surface_.area[e]
-                                             : std::sqrt(surface_.area[e])};
+                          size, size * size * (1 / pi)};
+        }
     });
 }
 
 void Search::assign_homes() {
-    ColumnIndex index;
-    index.build(band_);
+    const RowIndex index(band_);
     const double h = domain_.spacing;
     const int n = static_cast<int>(surface_.size());
     std::vector<int> home(n, -1);
     home_first_.assign(band_.size() + 1, 0);
-    for (int e = 0; e < n; ++e) {
-        const Vec3& c = plates_[e].centre;
-        const int i = static_cast<int>(std::floor((c.x - domain_.x_min()) / h));
-        const int j =
-            domain_.extruded() ? 0 : static_cast<int>(std::floor((c.y - domain_.y_min()) / h));
-        home[e] = index.find(band_, fold_index(i, domain_.cells_x, domain_.sides),
-                             fold_index(j, domain_.cells_y, domain_.sides),
-                             static_cast<int>(std::floor(c.z / h)));
-        if (home[e] >= 0) ++home_first_[home[e] + 1];
-    }
+    for_ranges(home.size(), [&](std::size_t begin, std::size_t end) {
+        for (std::size_t e = begin; e < end; ++e) {
+            const Vec3& c = plates_[e].centre;
+            const int i = static_cast<int>(std::floor((c.x - domain_.x_min()) / h));
+            const int j =
+                domain_.extruded() ? 0 : static_cast<int>(std::floor((c.y - domain_.y_min()) / h));
+            home[e] = index.find(fold_index(i, domain_.cells_x, domain_.sides),
+                                 fold_index(j, domain_.cells_y, domain_.sides),
+                                 static_cast<int>(std::floor(c.z / h)));
+        }
+    });
+    for (const int cell : home)
+        if (cell >= 0) ++home_first_[cell + 1];
     for (std::size_t c = 1; c < home_first_.size(); ++c)
         home_first_[c] += home_first_[c - 1];
     std::vector<int> at(home_first_.begin(), home_first_.end() - 1);
