@@ -19,8 +19,9 @@ constexpr double edge_margin = 1.4; ///< [cells] the contour may come nearer the
 
 /// dphi/dt = R(n) |grad phi| + sum of a (slope+ - slope-) / 2: the solid (phi < 0) recedes at R.
 /// Where R is the same for all normals Godunov's flux needs no dissipation.
-double Advance::change(const Slopes& s, const RowPair& row, Speed& speed, bool even) const {
-    if (tables_.constant(row)) {
+double Advance::change(const Slopes& s, const RowPair& row, const RateWindow& window, Speed& speed,
+                       bool even) const {
+    if (tables_.constant(row, window)) {
         speed.rate = tables_.rate(row, 0);
         double steep = upwind_steepness(s, speed.rate > 0, speed.waves);
         if (even) {
@@ -31,15 +32,7 @@ double Advance::change(const Slopes& s, const RowPair& row, Speed& speed, bool e
         speed.waves *= std::fabs(speed.rate);
         return speed.rate * steep;
     }
-    const double gx = s.mean(0), gy = s.mean(1), gz = s.mean(2);
-    const Tilt mean = tilt_of(extruded_, gx, gy, gz);
-    speed.rate = tables_.rate(row, mean.angle);
-    const std::array<double, 3> a = dissipation(tables_, row, extruded_, s, mean);
-    speed.waves = a[0] + a[1] + a[2];
-    double sum = speed.rate * std::sqrt(gx * gx + gy * gy + gz * gz);
-    for (int axis = 0; axis < 3; ++axis)
-        sum += 0.5 * a[axis] * (s.plus[axis] - s.minus[axis]);
-    return sum;
+    return lax_friedrichs(tables_, row, window, extruded_, s, speed);
 }
 
 /// The same at the mean rate over `dt` through layers: each acts for its share of the time.
@@ -51,7 +44,7 @@ double Advance::layered_change(const Slopes& s, const Layers& layers, double dt,
     for (int k = 0; k < layers.count; ++k) {
         Speed speed;
         if (share[k] > 0 && layers.row[k].row >= 0)
-            sum += share[k] * change(s, layers.row[k], speed, even);
+            sum += share[k] * change(s, layers.row[k], {}, speed, even);
     }
     return sum;
 }
@@ -79,9 +72,11 @@ Speed Advance::first_stage() {
         for (std::size_t c = begin; c < end; ++c) {
             const RowPair& row = row_[c];
             slope_[c] = 0;
-            if (!tables_.moves(row)) continue;
+            if (row.row < 0) continue;
+            const RateWindow& window = element_window_[element_[c]];
+            if (!tables_.moves(row, window)) continue;
             Speed speed;
-            slope_[c] = change(slopes(phi, c), row, speed, even_[c]);
+            slope_[c] = change(slopes(phi, c), row, window, speed, even_[c]);
             waves = std::max(waves, speed.waves);
             if (std::fabs(phi[c]) < h_) fastest = std::max(fastest, std::fabs(speed.rate));
         }
@@ -118,9 +113,11 @@ void Advance::step(double dt) {
     for_ranges(band_.size(), [&](std::size_t begin, std::size_t end) {
         for (std::size_t c = begin; c < end; ++c) {
             const RowPair& row = row_[c];
-            if (!tables_.moves(row)) continue;
+            if (row.row < 0) continue;
+            const RateWindow& window = element_window_[element_[c]];
+            if (!tables_.moves(row, window)) continue;
             Speed speed;
-            const double second = change(slopes(next, c), row, speed, even_[c]);
+            const double second = change(slopes(next, c), row, window, speed, even_[c]);
             band_.phi[c] += 0.5 * dt * (slope_[c] + second);
         }
     });
@@ -188,14 +185,16 @@ AdvanceReport Advance::run() {
 
 /// Lowest solid node next to the gas [nm].
 double lowest_contour(const Band& band) {
-    double lowest = std::numeric_limits<double>::infinity();
-    for (std::size_t c = 0; c < band.size(); ++c) {
-        if (band.phi[c] >= 0) continue;
-        for (const int n : band.neighbour[c])
-            if (n >= 0 && band.phi[n] >= 0)
-                lowest = std::min(lowest, (band.cells[c].k + 0.5) * band.domain.spacing);
-    }
-    return lowest;
+    const int top = band.cells.back().k + 1;
+    const double depth = largest_of_ranges(band.size(), [&](std::size_t begin, std::size_t end) {
+        for (std::size_t c = begin; c < end; ++c) // cells are sorted by height
+            if (band.phi[c] < 0)
+                for (const int n : band.neighbour[c])
+                    if (n >= 0 && band.phi[n] >= 0) return double(top - band.cells[c].k);
+        return 0.0;
+    });
+    return depth > 0 ? (top - depth + 0.5) * band.domain.spacing
+                     : std::numeric_limits<double>::infinity();
 }
 
 AdvanceReport advance(Front& front, const Surface& surface, const NormalRates& rates,

@@ -35,11 +35,6 @@ struct LayeredCell {
     BetweenCentres place;
 };
 
-struct Speed {
-    double waves = 0; ///< sum of |dH/dp| along the axes [nm/s]
-    double rate = 0;  ///< of the front along its normal [nm/s]
-};
-
 /// One call of `advance`.
 class Advance {
 public:
@@ -67,7 +62,8 @@ private:
                          : slopes_3d(band_, phi, c, 1 / h_, unseen);
     }
     void find_even_cells(const ClosestElements&);
-    double change(const Slopes&, const RowPair&, Speed&, bool even = false) const;
+    double change(const Slopes&, const RowPair&, const RateWindow&, Speed&,
+                  bool even = false) const;
     void blend(RowPair&, const BetweenCentres&) const;
     double layered_change(const Slopes&, const Layers&, double dt, bool even) const;
     Speed first_stage();
@@ -98,6 +94,7 @@ private:
     std::vector<LayeredCell> layered_;
     std::vector<int> layered_elements_;
     std::vector<Tilt> element_tilt_;
+    std::vector<RateWindow> element_window_;      ///< of the material below it, about its normal
     std::vector<double> element_rate_, own_rate_; ///< own: before films are peeled
 };
 

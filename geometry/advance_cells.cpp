@@ -157,18 +157,25 @@ void Advance::find_wall(LayeredCell& at) const {
 void Advance::classify_elements() {
     const double reach = (refresh_move + 2 * layer_reach) * h_;
     element_tilt_.resize(surface_.size());
+    element_window_.resize(surface_.size());
     element_rate_.assign(surface_.size(), 0.0);
+    std::vector<char> layered(surface_.size());
+    for_ranges(surface_.size(), [&](std::size_t begin, std::size_t end) {
+        for (std::size_t e = begin; e < end; ++e) {
+            const Vec3& n = surface_.normal[e];
+            const Vec3 p = surface_.centre[e] - n * report_.moved[e];
+            const int id = static_cast<int>(e);
+            element_tilt_[e] = tilt_of(extruded_, n.x, n.y, n.z);
+            const int row = finder_.row_below(id, {p, -n, false});
+            element_rate_[e] = tables_.rate(row, element_tilt_[e].angle);
+            element_window_[e] = tables_.window(row, element_tilt_[e].angle);
+            // Growth starts a film, so such elements are layered too.
+            layered[e] = element_rate_[e] < 0 || finder_.near(id, p.z, reach);
+        }
+    });
     layered_elements_.clear();
-    for (std::size_t e = 0; e < surface_.size(); ++e) {
-        const Vec3& n = surface_.normal[e];
-        const Vec3 p = surface_.centre[e] - n * report_.moved[e];
-        const int id = static_cast<int>(e);
-        element_tilt_[e] = tilt_of(extruded_, n.x, n.y, n.z);
-        const int row = finder_.row_below(id, {p, -n, false});
-        element_rate_[e] = tables_.rate(row, element_tilt_[e].angle);
-        // Growth starts a film, so such elements are layered too.
-        if (element_rate_[e] < 0 || finder_.near(id, p.z, reach)) layered_elements_.push_back(id);
-    }
+    for (std::size_t e = 0; e < layered.size(); ++e)
+        if (layered[e]) layered_elements_.push_back(static_cast<int>(e));
     own_rate_ = element_rate_;
     for (const int e : layered_elements_)
         element_rate_[e] = 0;
@@ -201,7 +208,7 @@ void Advance::find_layers(LayeredCell& at, Speed& most) {
     for (int k = 0; k < at.layers.count; ++k) {
         Speed speed;
         blend(at.layers.row[k], at.place);
-        if (at.layers.row[k].row >= 0) change(s, at.layers.row[k], speed);
+        if (at.layers.row[k].row >= 0) change(s, at.layers.row[k], {}, speed);
         most.waves = std::max(most.waves, speed.waves);
         if (std::fabs(phi[c]) < h_) most.rate = std::max(most.rate, std::fabs(speed.rate));
     }

@@ -6,6 +6,7 @@
 #include <tbb/blocked_range.h>
 #include <tbb/parallel_for.h>
 #include <tbb/parallel_reduce.h>
+#include <tbb/parallel_sort.h>
 
 #include <algorithm>
 #include <cmath>
@@ -17,6 +18,9 @@ namespace rille::geometry {
 namespace {
 
 constexpr std::size_t range_size = 4096;
+/// [cells] the eikonal value of a cell is at least its least neighbour's plus this: slope 1 shared
+/// by three axes, each with a weight of 1.5.
+constexpr double least_rise = 0.38;
 
 bool before(const Band::Cell& a, const Band::Cell& b) {
     return std::tie(a.k, a.j, a.i) < std::tie(b.k, b.j, b.i);
@@ -26,27 +30,15 @@ bool same(const Band::Cell& a, const Band::Cell& b) {
     return a.i == b.i && a.j == b.j && a.k == b.k;
 }
 
-/// Where each row (k, j) starts in the sorted list of cells.
-struct Rows {
-    explicit Rows(const Band& band) : ny(band.domain.cells_y) {
-        k_low = band.cells.front().k;
-        k_high = band.cells.back().k;
-        first.assign(static_cast<std::size_t>(k_high - k_low + 1) * ny + 1, 0);
-        for (const Band::Cell& c : band.cells)
-            ++first[row(c.k, c.j) + 1];
-        for (std::size_t r = 1; r < first.size(); ++r)
-            first[r] += first[r - 1];
-    }
-    std::size_t row(int k, int j) const { return static_cast<std::size_t>(k - k_low) * ny + j; }
-    int ny, k_low, k_high;
-    std::vector<int> first;
-};
+bool has_gap(const std::array<int, 6>& next, bool flat) {
+    return (next[0] | next[1] | next[4] | next[5]) < 0 || (!flat && (next[2] | next[3]) < 0);
+}
 
 /// For each cell of row `from`, the cell with the same i in row `to`, written to side `side`.
-void join_rows(Band& band, const Rows& rows, std::size_t from, std::size_t to, int side) {
-    int t = rows.first[to];
-    const int t_end = rows.first[to + 1];
-    for (int c = rows.first[from]; c < rows.first[from + 1]; ++c) {
+void join_rows(Band& band, const RowIndex& rows, std::size_t from, std::size_t to, int side) {
+    int t = rows.first(to);
+    const int t_end = rows.first(to + 1);
+    for (int c = rows.first(from); c < rows.first(from + 1); ++c) {
         const int i = band.cells[c].i;
         while (t < t_end && band.cells[t].i < i)
             ++t;
@@ -121,99 +113,133 @@ double eikonal(const Band& band, std::size_t c, double unknown) {
     return std::max({u, n > 0 ? terms[0].least : u, 1e-3 * h});
 }
 
-/// Steps (0 to 2, else 3) from each cell to the nearest one whose neighbour has the other sign.
-/// Contouring needs all cells within two steps, whatever phi says where it is no distance.
-std::vector<char> steps_to_contour(const Band& band) {
-    std::vector<char> steps(band.size(), 3);
-    if (band.domain.extruded()) return steps;
-    for (int step = 0; step < 3; ++step) {
-        const std::vector<char> before = steps;
-        for_ranges(band.size(), [&](std::size_t begin, std::size_t end) {
-            for (std::size_t c = begin; c < end; ++c)
-                for (const int n : band.neighbour[c])
-                    if (n >= 0 && before[c] == 3 &&
-                        (step == 0 ? (band.phi[n] < 0) != (band.phi[c] < 0)
-                                   : before[n] == step - 1))
-                        steps[c] = static_cast<char>(step);
-        });
-    }
-    return steps;
+/// Marks the cells with a neighbour of the other sign. Only contouring in three dimensions asks.
+std::vector<char> beside_contour(const Band& band) {
+    std::vector<char> beside(band.size(), 0);
+    if (band.domain.extruded()) return beside;
+    for_ranges(band.size(), [&](std::size_t begin, std::size_t end) {
+        for (std::size_t c = begin; c < end; ++c)
+            for (const int n : band.neighbour[c])
+                if (n >= 0 && (band.phi[n] < 0) != (band.phi[c] < 0)) beside[c] = 1;
+    });
+    return beside;
 }
 
-/// Missing neighbours of cells within the half-width, sorted, with the sign of the cell they touch.
-std::vector<std::pair<Band::Cell, double>> missing_cells(const Band& band, double reach) {
+/// Whether a marked cell lies within `steps` of c. Contouring needs all cells within two steps,
+/// whatever phi says where it is no distance.
+bool within_steps(const Band& band, const std::vector<char>& beside, int c, int steps) {
+    if (beside[c]) return true;
+    if (steps == 0) return false;
+    for (const int n : band.neighbour[c])
+        if (n >= 0 && within_steps(band, beside, n, steps - 1)) return true;
+    return false;
+}
+
+/// A cell to add, with the sign of the cell it touches; in the order of the band.
+struct Fresh {
+    Band::Cell cell;
+    double sign;
+};
+bool operator<(const Fresh& a, const Fresh& b) {
+    return std::tie(a.cell.k, a.cell.j, a.cell.i, a.sign) <
+           std::tie(b.cell.k, b.cell.j, b.cell.i, b.sign);
+}
+
+/// Missing neighbours of those of the cells from(0) to from(count - 1) that are within `reach` or
+/// one step from the contour.
+template <class From>
+std::vector<Fresh> missing_cells(const Band& band, const std::vector<char>& beside, double reach,
+                                 std::size_t count, const From& from) {
     static constexpr int step[6][3] = {{-1, 0, 0}, {1, 0, 0},  {0, -1, 0},
                                        {0, 1, 0},  {0, 0, -1}, {0, 0, 1}};
     const Domain& d = band.domain;
-    const std::vector<char> steps = steps_to_contour(band);
-    std::vector<std::pair<Band::Cell, double>> out;
-    for (std::size_t c = 0; c < band.size(); ++c) {
-        if (std::fabs(band.phi[c]) > reach && steps[c] > 1) continue;
-        for (int side = 0; side < 6; ++side) {
-            if (band.neighbour[c][side] >= 0 || (d.extruded() && (side == 2 || side == 3)))
-                continue;
-            const Band::Cell& from = band.cells[c];
-            out.push_back(
-                {{fold_index(from.i + step[side][0], d.cells_x, d.sides),
-                  fold_index(from.j + step[side][1], d.cells_y, d.sides), from.k + step[side][2]},
-                 band.phi[c] < 0 ? -1.0 : 1.0});
+    const bool flat = d.extruded();
+    std::vector<std::vector<Fresh>> parts(count / range_size + 1);
+    for_ranges(count, [&](std::size_t begin, std::size_t end) {
+        std::vector<Fresh>& out = parts[begin / range_size];
+        for (std::size_t at = begin; at < end; ++at) {
+            const int c = from(at);
+            const auto& next = band.neighbour[c];
+            if (!has_gap(next, flat)) continue;
+            if (std::fabs(band.phi[c]) > reach && !within_steps(band, beside, c, 1)) continue;
+            for (int side = 0; side < 6; ++side) {
+                if (next[side] >= 0 || (flat && (side == 2 || side == 3))) continue;
+                const Band::Cell& cell = band.cells[c];
+                out.push_back({{fold_index(cell.i + step[side][0], d.cells_x, d.sides),
+                                fold_index(cell.j + step[side][1], d.cells_y, d.sides),
+                                cell.k + step[side][2]},
+                               band.phi[c] < 0 ? -1.0 : 1.0});
+            }
         }
-    }
-    std::sort(out.begin(), out.end(),
-              [](const auto& a, const auto& b) { return before(a.first, b.first); });
-    out.erase(std::unique(out.begin(), out.end(),
-                          [](const auto& a, const auto& b) { return same(a.first, b.first); }),
-              out.end());
-    return out;
+    });
+    std::vector<Fresh> all;
+    for (const std::vector<Fresh>& part : parts)
+        all.insert(all.end(), part.begin(), part.end());
+    tbb::parallel_sort(all.begin(), all.end());
+    all.erase(std::unique(all.begin(), all.end(),
+                          [](const Fresh& a, const Fresh& b) { return same(a.cell, b.cell); }),
+              all.end());
+    return all;
 }
 
-/// Adds one layer of cells around those within `reach` and gives it eikonal values. Returns whether
-/// there was any to add.
-bool add_layer(Band& band, double reach) {
-    const auto fresh = missing_cells(band, reach);
-    if (fresh.empty()) return false;
-    const double unknown = 4 * reach;
-    Band grown;
-    grown.domain = band.domain;
-    grown.cells.reserve(band.size() + fresh.size());
-    grown.phi.reserve(band.size() + fresh.size());
-    std::vector<int> added;
-    added.reserve(fresh.size());
-    std::size_t f = 0;
-    const auto add = [&] {
-        added.push_back(static_cast<int>(grown.cells.size()));
-        grown.cells.push_back(fresh[f].first);
-        grown.phi.push_back(fresh[f].second * unknown);
-        ++f;
-    };
-    for (std::size_t c = 0; c < band.size(); ++c) {
-        while (f < fresh.size() && before(fresh[f].first, band.cells[c]))
-            add();
-        grown.cells.push_back(band.cells[c]);
-        grown.phi.push_back(band.phi[c]);
+/// Puts cells in where they belong, with phi = sign times `unknown`; returns where they are.
+std::vector<int> insert(Band& band, std::vector<char>& beside, const std::vector<Fresh>& fresh,
+                        double unknown) {
+    std::size_t old = band.size(), f = fresh.size(), to = old + f;
+    std::vector<int> added(f);
+    band.cells.resize(to);
+    band.phi.resize(to);
+    beside.resize(to);
+    while (f > 0) { // from behind, so that it can be done in place
+        --to;
+        if (old > 0 && before(fresh[f - 1].cell, band.cells[old - 1])) {
+            --old;
+            band.cells[to] = band.cells[old];
+            band.phi[to] = band.phi[old];
+            beside[to] = beside[old];
+        } else {
+            --f;
+            band.cells[to] = fresh[f].cell;
+            band.phi[to] = fresh[f].sign * unknown;
+            beside[to] = 0;
+            added[f] = static_cast<int>(to);
+        }
     }
-    while (f < fresh.size())
-        add();
-    connect(grown);
-    // Upwind neighbours within the layer itself settle in as many rounds as chains are long.
+    connect(band);
+    if (band.domain.extruded()) return added;
+    for (const int c : added)
+        for (const int n : band.neighbour[c])
+            if (n >= 0 && (band.phi[n] < 0) != (band.phi[c] < 0)) beside[c] = beside[n] = 1;
+    return added;
+}
+
+/// Eikonal values for added cells. Upwind neighbours among themselves settle in as many rounds as
+/// chains are long.
+void solve(Band& band, const std::vector<int>& added, double unknown) {
     std::vector<double> value(added.size());
+    std::vector<char> news(band.size(), 0);
+    const auto hears_news = [&](int c) {
+        for (int side = 0; side < 6; ++side) {
+            const int n = band.neighbour[c][side], beyond = n < 0 ? -1 : band.neighbour[n][side];
+            if (n >= 0 && (news[n] || (beyond >= 0 && news[beyond]))) return true;
+        }
+        return false;
+    };
     for (int round = 0; round < 4; ++round) {
         for_ranges(added.size(), [&](std::size_t begin, std::size_t end) {
             for (std::size_t a = begin; a < end; ++a)
-                value[a] = eikonal(grown, added[a], unknown);
+                value[a] = round == 0 || hears_news(added[a]) ? eikonal(band, added[a], unknown)
+                                                              : std::fabs(band.phi[added[a]]);
         });
         bool settled = true;
         for (std::size_t a = 0; a < added.size(); ++a) {
-            double& phi = grown.phi[added[a]];
-            settled = settled && std::fabs(phi) == value[a];
+            double& phi = band.phi[added[a]];
+            news[added[a]] = std::fabs(phi) != value[a];
+            settled = settled && !news[added[a]];
             phi = std::copysign(value[a], phi);
         }
         if (settled) break;
     }
-    band = std::move(grown);
-    return !band.domain.extruded() || std::any_of(added.begin(), added.end(), [&](int c) {
-        return std::fabs(band.phi[c]) <= reach;
-    });
 }
 
 } // namespace
@@ -240,65 +266,17 @@ double largest_of_ranges(std::size_t n,
         [](double a, double b) { return std::max(a, b); });
 }
 
-int fold_index(int i, int count, Sides sides) {
-    if (i >= 0 && i < count) return i;
-    const int period = sides == Sides::mirror ? 2 * count : count;
-    const int m = ((i % period) + period) % period;
-    return m < count ? m : period - 1 - m;
-}
-
-void ColumnIndex::build(const Band& band) {
-    const Domain& d = band.domain;
-    first_.assign(static_cast<std::size_t>(d.cells_x) * d.cells_y + 1, 0);
-    const auto column = [&](const Band::Cell& c) {
-        return c.i + static_cast<std::size_t>(d.cells_x) * c.j;
-    };
-    for (const Band::Cell& c : band.cells)
-        ++first_[column(c) + 1];
-    for (std::size_t c = 1; c < first_.size(); ++c)
-        first_[c] += first_[c - 1];
-    std::vector<int> at(first_.begin(), first_.end() - 1);
-    cell_.resize(band.size());
-    for (std::size_t c = 0; c < band.size(); ++c)
-        cell_[at[column(band.cells[c])]++] = static_cast<int>(c);
-}
-
-std::pair<const int*, const int*> ColumnIndex::column(const Band& band, int i, int j) const {
-    const std::size_t c = i + static_cast<std::size_t>(band.domain.cells_x) * j;
-    return {cell_.data() + first_[c], cell_.data() + first_[c + 1]};
-}
-
-int ColumnIndex::find(const Band& band, int i, int j, int k) const {
-    const auto [begin, end] = column(band, i, j);
-    const int* at = std::lower_bound(begin, end, k,
-                                     [&](int c, int wanted) { return band.cells[c].k < wanted; });
-    return at != end && band.cells[*at].k == k ? *at : -1;
-}
-
-double ColumnIndex::phi(const Band& band, int i, int j, int k) const {
-    const auto [begin, end] = column(band, i, j);
-    const double beyond = band_half_width * band.domain.spacing;
-    const int* at = std::lower_bound(begin, end, k,
-                                     [&](int c, int wanted) { return band.cells[c].k < wanted; });
-    if (at == end) return beyond;
-    if (band.cells[*at].k == k) return std::clamp(band.phi[*at], -beyond, beyond);
-    return at == begin || band.phi[*at] < 0 ? -beyond : beyond;
-}
-
-std::size_t ColumnIndex::memory_bytes() const {
-    return (first_.capacity() + cell_.capacity()) * sizeof(int);
-}
-
 void connect(Band& band) {
     RILLE_CHECK(!band.cells.empty(), "an empty band has no front");
-    const Rows rows(band);
+    const RowIndex rows(band);
     const Domain& d = band.domain;
+    const int ny = d.cells_y;
     band.neighbour.resize(band.size());
     const auto joined = [&](std::size_t begin, std::size_t end) {
         for (std::size_t r = begin; r < end; ++r) {
-            const int k = rows.k_low + static_cast<int>(r / rows.ny);
-            const int j = static_cast<int>(r % rows.ny);
-            const int first = rows.first[r], last = rows.first[r + 1];
+            const int k = rows.k_low() + static_cast<int>(r / ny);
+            const int j = static_cast<int>(r % ny);
+            const int first = rows.first(r), last = rows.first(r + 1);
             if (first == last) continue;
             connect_within_row(band, first, last);
             for (int up = 0; up < 2; ++up) {
@@ -308,9 +286,8 @@ void connect(Band& band) {
                     for (int c = first; c < last; ++c)
                         band.neighbour[c][side_y] = -1;
                 else
-                    join_rows(band, rows, r, rows.row(k, fold_index(to_j, rows.ny, d.sides)),
-                              side_y);
-                if (to_k >= rows.k_low && to_k <= rows.k_high)
+                    join_rows(band, rows, r, rows.row(k, fold_index(to_j, ny, d.sides)), side_y);
+                if (to_k >= rows.k_low() && to_k <= rows.k_high())
                     join_rows(band, rows, r, rows.row(to_k, j), side_z);
                 else
                     for (int c = first; c < last; ++c)
@@ -319,21 +296,40 @@ void connect(Band& band) {
         }
     };
     tbb::parallel_for(
-        tbb::blocked_range<std::size_t>(0, rows.first.size() - 1, 64),
+        tbb::blocked_range<std::size_t>(0, rows.rows(), 64),
         [&](const tbb::blocked_range<std::size_t>& r) { joined(r.begin(), r.end()); });
 }
 
 void retopologise(Band& band, int layers) {
-    const double reach = band_half_width * band.domain.spacing;
-    for (int layer = 0; layer < layers && add_layer(band, reach); ++layer) {
+    const double reach = band_half_width * band.domain.spacing, unknown = 4 * reach;
+    // A cell of more than this has no missing neighbour within the half-width: see least_rise.
+    const double inner = reach - least_rise * band.domain.spacing;
+    std::vector<char> beside = beside_contour(band);
+    std::vector<int> added;
+    for (int layer = 0; layer < layers; ++layer) {
+        // After the first layer only what it added can lack neighbours.
+        const std::vector<Fresh> fresh =
+            layer == 0 ? missing_cells(band, beside, inner, band.size(),
+                                       [](std::size_t c) { return static_cast<int>(c); })
+                       : missing_cells(band, beside, inner, added.size(),
+                                       [&](std::size_t a) { return added[a]; });
+        if (fresh.empty()) break;
+        added = insert(band, beside, fresh, unknown);
+        solve(band, added, unknown);
     }
-    const std::vector<char> steps = steps_to_contour(band);
+    std::vector<char> drop(band.size());
+    for_ranges(band.size(), [&](std::size_t begin, std::size_t end) {
+        for (std::size_t c = begin; c < end; ++c)
+            drop[c] = std::fabs(band.phi[c]) > reach &&
+                      !within_steps(band, beside, static_cast<int>(c), 2);
+    });
     std::size_t kept = 0;
     for (std::size_t c = 0; c < band.size(); ++c) {
-        if (std::fabs(band.phi[c]) > reach && steps[c] > 2) continue;
+        if (drop[c]) continue;
         band.cells[kept] = band.cells[c];
         band.phi[kept++] = band.phi[c];
     }
+    if (kept == band.size()) return;
     band.cells.resize(kept);
     band.phi.resize(kept);
     connect(band);
@@ -341,12 +337,14 @@ void retopologise(Band& band, int layers) {
 
 bool contour_lacks_cells(const Band& band) {
     if (band.domain.extruded()) return false;
-    const std::vector<char> steps = steps_to_contour(band);
-    for (std::size_t c = 0; c < band.size(); ++c)
-        if (steps[c] <= 1)
-            for (const int n : band.neighbour[c])
-                if (n < 0) return true;
-    return false;
+    const std::vector<char> beside = beside_contour(band);
+    return largest_of_ranges(band.size(), [&](std::size_t begin, std::size_t end) {
+               for (std::size_t c = begin; c < end; ++c)
+                   if (has_gap(band.neighbour[c], false) &&
+                       within_steps(band, beside, static_cast<int>(c), 1))
+                       return 1.0;
+               return 0.0;
+           }) > 0;
 }
 
 double edge_distance(const Band& band) {
@@ -355,10 +353,8 @@ double edge_distance(const Band& band) {
     return far - largest_of_ranges(band.size(), [&](std::size_t begin, std::size_t end) {
                double most = 0;
                for (std::size_t c = begin; c < end; ++c) {
-                   const auto& n = band.neighbour[c];
-                   const bool inner = n[0] >= 0 && n[1] >= 0 && n[4] >= 0 && n[5] >= 0 &&
-                                      (flat || (n[2] >= 0 && n[3] >= 0));
-                   if (!inner) most = std::max(most, far - std::fabs(band.phi[c]));
+                   if (has_gap(band.neighbour[c], flat))
+                       most = std::max(most, far - std::fabs(band.phi[c]));
                }
                return most;
            });

@@ -20,13 +20,11 @@ void for_ranges(std::size_t n, const std::function<void(std::size_t, std::size_t
 double largest_of_ranges(std::size_t n,
                          const std::function<double(std::size_t, std::size_t)>& body);
 
-/// Finds cells by their indices: per column (i, j) the numbers of its cells by rising k. Every
+/// Reads phi by indices: per column (i, j) the numbers of its cells by rising k. Every
 /// column crosses the front, so the nearest cell of a column also tells the sign beyond the band.
 class ColumnIndex {
 public:
     void build(const Band&);
-    /// Number of cell (i, j, k), or -1 outside the band; 0 <= i < cells_x, 0 <= j < cells_y.
-    int find(const Band&, int i, int j, int k) const;
     /// phi [nm] of node (i, j, k); outside the band +-(half-width) by the side it is on.
     double phi(const Band&, int i, int j, int k) const;
     std::size_t memory_bytes() const;
@@ -35,6 +33,25 @@ private:
     std::pair<const int*, const int*> column(const Band&, int i, int j) const;
     std::vector<int> first_;
     std::vector<int> cell_;
+};
+
+/// Finds cells row by row (k, j): quick to build, for many look-ups at once. The band must outlive
+/// it.
+class RowIndex {
+public:
+    explicit RowIndex(const Band&);
+    /// Number of cell (i, j, k), or -1 outside the band; 0 <= i < cells_x, 0 <= j < cells_y.
+    int find(int i, int j, int k) const;
+    int k_low() const { return k_low_; }
+    int k_high() const { return k_high_; }
+    std::size_t rows() const { return first_.size() - 1; }
+    std::size_t row(int k, int j) const { return static_cast<std::size_t>(k - k_low_) * ny_ + j; }
+    int first(std::size_t row) const { return first_[row]; } ///< cells [first(row), first(row + 1))
+
+private:
+    const Band& band_;
+    int ny_, k_low_, k_high_;
+    std::vector<int> first_;
 };
 
 /// Index of a node beyond the sides: mirrored or wrapped back into [0, count).

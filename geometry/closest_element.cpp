@@ -7,6 +7,7 @@
 #include <array>
 #include <cmath>
 #include <limits>
+#include <utility>
 
 namespace rille::geometry {
 
@@ -37,25 +38,25 @@ Vec3 nearest_on_triangle(const Vec3& a, const Vec3& b, const Vec3& c, const Vec3
     return best;
 }
 
-/// The candidate with its merits; smaller is better.
+/// The best element of a cell yet.
 struct Candidate {
     int element = -1;
     double distance = std::numeric_limits<double>::infinity();
-    double facing = 0;
-    Vec3 foot;
+    Vec3 away; ///< from its nearest point to the cell
 };
 
 /// What judging an element takes, side by side in memory: elements come in no order.
-struct Plate {
+struct alignas(64) Plate {
     Vec3 centre, normal; ///< [nm] where it has moved to; unit
     double size;         ///< [nm] reach from the centre: half a segment, more than a quad's disc
+    double disc;         ///< [nm^2] square of the radius of a quad's disc
 };
 
 /// From the nearest point of the disc that stands for a quad, to a point `apart` from its centre.
 Vec3 from_disc(const Vec3& apart, const Plate& plate) {
     const Vec3 across = apart - plate.normal * apart.dot(plate.normal);
-    const double square = across.dot(across), most = plate.size * plate.size * (1 / pi);
-    return square <= most ? apart - across : apart - across * std::sqrt(most / square);
+    const double square = across.dot(across);
+    return square <= plate.disc ? apart - across : apart - across * std::sqrt(plate.disc / square);
 }
 
 class Search {
@@ -93,8 +94,9 @@ private:
         return p - (nearest_point(surface_, true, e, p - shift) + shift);
     }
     void offer(const Vec3& p, int e, Candidate& best) const;
-    bool better(double distance, double facing, int e, const Candidate& best) const;
-    Candidate improved(std::size_t c, const std::vector<Candidate>& old, Sweep kind) const;
+    double facing(const Vec3& away, double distance, int e) const;
+    bool wins_tie(const Vec3& away, double distance, int e, const Candidate& best) const;
+    Candidate improved(std::size_t c, Sweep kind) const;
 
     const Band& band_;
     const Surface& surface_;
@@ -102,37 +104,45 @@ private:
     const Domain domain_;
     double tolerance_;
     std::vector<Plate> plates_;
-    std::vector<char> fresh_; ///< per cell: the last sweep changed its element
+    // Per cell; apart from each other because neighbours ask for the element alone.
+    std::vector<int> element_;
+    std::vector<double> distance_;
+    std::vector<Vec3> away_;
+    std::vector<char> fresh_; ///< the last sweep changed its element
     std::vector<int> home_first_, home_element_;
 };
 
 void Search::pack() {
     plates_.resize(surface_.size());
     for_ranges(plates_.size(), [&](std::size_t begin, std::size_t end) {
-        for (std::size_t e = begin; e < end; ++e)
+        for (std::size_t e = begin; e < end; ++e) {
+            const double area = surface_.area[e];
+            const double size = domain_.extruded() ? 0.5 * area : std::sqrt(area);
             plates_[e] = {surface_.centre[e] + shift_of(static_cast<int>(e)), surface_.normal[e],
-                          domain_.extruded() ? 0.5 * surface_.area[e]
-                                             : std::sqrt(surface_.area[e])};
+                          size, size * size * (1 / pi)};
+        }
     });
 }
 
 void Search::assign_homes() {
-    ColumnIndex index;
-    index.build(band_);
+    const RowIndex index(band_);
     const double h = domain_.spacing;
     const int n = static_cast<int>(surface_.size());
     std::vector<int> home(n, -1);
     home_first_.assign(band_.size() + 1, 0);
-    for (int e = 0; e < n; ++e) {
-        const Vec3& c = plates_[e].centre;
-        const int i = static_cast<int>(std::floor((c.x - domain_.x_min()) / h));
-        const int j =
-            domain_.extruded() ? 0 : static_cast<int>(std::floor((c.y - domain_.y_min()) / h));
-        home[e] = index.find(band_, fold_index(i, domain_.cells_x, domain_.sides),
-                             fold_index(j, domain_.cells_y, domain_.sides),
-                             static_cast<int>(std::floor(c.z / h)));
-        if (home[e] >= 0) ++home_first_[home[e] + 1];
-    }
+    for_ranges(home.size(), [&](std::size_t begin, std::size_t end) {
+        for (std::size_t e = begin; e < end; ++e) {
+            const Vec3& c = plates_[e].centre;
+            const int i = static_cast<int>(std::floor((c.x - domain_.x_min()) / h));
+            const int j =
+                domain_.extruded() ? 0 : static_cast<int>(std::floor((c.y - domain_.y_min()) / h));
+            home[e] = index.find(fold_index(i, domain_.cells_x, domain_.sides),
+                                 fold_index(j, domain_.cells_y, domain_.sides),
+                                 static_cast<int>(std::floor(c.z / h)));
+        }
+    });
+    for (const int cell : home)
+        if (cell >= 0) ++home_first_[cell + 1];
     for (std::size_t c = 1; c < home_first_.size(); ++c)
         home_first_[c] += home_first_[c - 1];
     std::vector<int> at(home_first_.begin(), home_first_.end() - 1);
@@ -141,11 +151,14 @@ void Search::assign_homes() {
         if (home[e] >= 0) home_element_[at[home[e]]++] = e;
 }
 
-bool Search::better(double distance, double facing, int e, const Candidate& best) const {
-    if (best.element < 0) return true;
-    if (distance < best.distance - tolerance_) return true;
-    if (distance > best.distance + tolerance_) return false;
-    if (std::fabs(facing - best.facing) > 1e-9) return facing > best.facing;
+double Search::facing(const Vec3& away, double distance, int e) const {
+    return distance > tolerance_ ? std::fabs(away.dot(plates_[e].normal)) / distance : 1.0;
+}
+
+bool Search::wins_tie(const Vec3& away, double distance, int e, const Candidate& best) const {
+    const double mine = facing(away, distance, e);
+    const double other = facing(best.away, best.distance, best.element);
+    if (std::fabs(mine - other) > 1e-9) return mine > other;
     const double level =
         std::fabs(surface_.normal[e].z) - std::fabs(surface_.normal[best.element].z);
     return std::fabs(level) > 1e-9 ? level > 0 : e < best.element;
@@ -160,18 +173,18 @@ void Search::offer(const Vec3& p, int e, Candidate& best) const {
     if (apart.dot(apart) > least * least) return;
     const Vec3 away = domain_.extruded() ? from_segment(local, e) : from_disc(apart, plate);
     const double distance = away.length();
-    if (distance > best.distance + tolerance_) return;
-    const double facing =
-        distance > tolerance_ ? std::fabs(away.dot(plate.normal)) / distance : 1.0;
-    if (!better(distance, facing, e, best)) return;
-    best = {e, distance, facing, p - away};
+    if (best.element >= 0 && !(distance < best.distance - tolerance_)) {
+        if (distance > best.distance + tolerance_) return;
+        if (!wins_tie(away, distance, e, best)) return;
+    }
+    best = {e, distance, away};
 }
 
 /// The best of what the cell and its neighbours knew. An element is looked at once.
-Candidate Search::improved(std::size_t c, const std::vector<Candidate>& old, Sweep kind) const {
+Candidate Search::improved(std::size_t c, Sweep kind) const {
     const Band::Cell& cell = band_.cells[c];
     const Vec3 p = domain_.node(cell.i, cell.j, cell.k);
-    Candidate best = old[c];
+    Candidate best{element_[c], distance_[c], away_[c]};
     std::array<int, 6> seen;
     int count = 0;
     const auto homes = [&](std::size_t at) {
@@ -189,7 +202,7 @@ Candidate Search::improved(std::size_t c, const std::vector<Candidate>& old, Swe
     joined(best.element);
     for (const int n : band_.neighbour[c]) {
         if (n < 0 || n == static_cast<int>(c) || (kind == Sweep::news && !fresh_[n])) continue;
-        const int e = old[n].element;
+        const int e = element_[n];
         if (e >= 0 && std::find(seen.begin(), seen.begin() + count, e) == seen.begin() + count) {
             seen[count++] = e;
             offer(p, e, best);
@@ -202,15 +215,20 @@ Candidate Search::improved(std::size_t c, const std::vector<Candidate>& old, Swe
 
 ClosestElements Search::run() {
     const std::size_t n = band_.size();
-    std::vector<Candidate> now(n), next;
+    element_.assign(n, -1);
+    distance_.assign(n, Candidate().distance);
+    away_.assign(n, Vec3(0));
     fresh_.assign(n, 0);
     // Cells by distance in rings of one cell: inner rings are settled before outer ones ask them.
     std::array<std::vector<int>, 4> rings;
+    for (std::vector<int>& ring : rings)
+        ring.reserve(n / 2);
+    const double scale = 1 / domain_.spacing;
     for (std::size_t c = 0; c < n; ++c) {
-        const double ring = std::fabs(band_.phi[c]) / domain_.spacing;
-        rings[std::min(rings.size() - 1, static_cast<std::size_t>(ring))].push_back(
-            static_cast<int>(c));
+        const double ring = std::min(3.0, std::fabs(band_.phi[c]) * scale);
+        rings[static_cast<std::size_t>(ring)].push_back(static_cast<int>(c));
     }
+    std::vector<Candidate> next;
     for (std::size_t at = 0; at < rings.size(); ++at) {
         const std::vector<int>& ring = rings[at];
         next.resize(ring.size());
@@ -220,26 +238,27 @@ ClosestElements Search::run() {
                 round > 0 ? Sweep::news : (at < 2 ? Sweep::elements_and_homes : Sweep::elements);
             for_ranges(ring.size(), [&](std::size_t begin, std::size_t end) {
                 for (std::size_t r = begin; r < end; ++r)
-                    next[r] = improved(ring[r], now, kind);
+                    next[r] = improved(ring[r], kind);
             });
             for_ranges(ring.size(), [&](std::size_t begin, std::size_t end) {
                 for (std::size_t r = begin; r < end; ++r) {
-                    fresh_[ring[r]] = next[r].element != now[ring[r]].element;
-                    if (fresh_[ring[r]]) now[ring[r]] = next[r];
+                    const int c = ring[r];
+                    fresh_[c] = next[r].element != element_[c];
+                    if (!fresh_[c]) continue;
+                    element_[c] = next[r].element;
+                    distance_[c] = next[r].distance;
+                    away_[c] = next[r].away;
                 }
             });
         }
     }
-    ClosestElements out;
-    out.element.resize(n);
-    out.foot.resize(n);
     for_ranges(n, [&](std::size_t begin, std::size_t end) {
         for (std::size_t c = begin; c < end; ++c) {
-            out.element[c] = now[c].element;
-            out.foot[c] = now[c].foot;
+            const Band::Cell& cell = band_.cells[c];
+            if (element_[c] >= 0) away_[c] = domain_.node(cell.i, cell.j, cell.k) - away_[c];
         }
     });
-    return out;
+    return {std::move(element_), std::move(away_)};
 }
 
 } // namespace

@@ -14,113 +14,31 @@ namespace {
 constexpr double pi = 3.14159265358979323846;
 constexpr double narrow = 0.05; ///< [rad] below it a box of slopes counts as a small cone
 
-/// The box of slopes of a cell in polar form: horizontal magnitude against z.
-struct Box {
-    double h_low, h_high; ///< signed p in 2-D, magnitude of (p, q) in 3-D
-    double z_low, z_high;
-};
-
-double least_magnitude(double a, double b) {
-    return a * b <= 0 ? 0 : std::min(std::fabs(a), std::fabs(b));
-}
-double most_magnitude(double a, double b) {
-    return std::max(std::fabs(a), std::fabs(b));
-}
-
-Box box_of(bool extruded, const Slopes& s) {
-    Box b;
-    b.z_low = std::min(s.minus[2], s.plus[2]);
-    b.z_high = std::max(s.minus[2], s.plus[2]);
-    if (extruded) {
-        b.h_low = std::min(s.minus[0], s.plus[0]);
-        b.h_high = std::max(s.minus[0], s.plus[0]);
-        return b;
-    }
-    const double x0 = least_magnitude(s.minus[0], s.plus[0]);
-    const double y0 = least_magnitude(s.minus[1], s.plus[1]);
-    const double x1 = most_magnitude(s.minus[0], s.plus[0]);
-    const double y1 = most_magnitude(s.minus[1], s.plus[1]);
-    b.h_low = std::sqrt(x0 * x0 + y0 * y0);
-    b.h_high = std::sqrt(x1 * x1 + y1 * y1);
-    return b;
-}
-
-Tilt tilt(double horizontal, double vertical) {
+Tilt exact_tilt(double horizontal, double vertical) {
     const double length = std::sqrt(horizontal * horizontal + vertical * vertical);
     if (length == 0) return {};
-    return {std::atan2(horizontal, vertical), horizontal / length, vertical / length};
+    return {std::atan2(horizontal, vertical), horizontal / length, vertical / length, -1};
 }
 
-Tilt turned(const Tilt& t, double by) {
-    const double c = 1 - 0.5 * by * by;
-    return {t.angle + by, t.sine * c + t.cosine * by, t.cosine * c - t.sine * by};
+/// Runs from 0 to 2 as the angle from +z towards the horizontal runs from 0 to pi, in its place;
+/// horizontal >= 0.
+double turn_of(double horizontal, double vertical) {
+    const double sum = horizontal + std::fabs(vertical);
+    return vertical < 0 ? 1 - vertical / sum : horizontal / sum;
 }
 
-WaveSpeed most(const WaveSpeed& a, const WaveSpeed& b) {
-    return {std::max(a.horizontal, b.horizontal), std::max(a.vertical, b.vertical)};
-}
+constexpr int turn_bins = 128; ///< none wider than 1/32 rad
 
-/// Wave speed over all tilts a box of slopes holds.
-WaveSpeed over_box(const RateTables& tables, int row, bool extruded, const Box& b,
-                   const Tilt& mean) {
-    const double lowest = extruded ? -pi : 0;
-    const double wide = b.h_high - b.h_low, high = b.z_high - b.z_low;
-    const double square = wide * wide + high * high;
-    const double h = 0.5 * (b.h_low + b.h_high), z = 0.5 * (b.z_low + b.z_high);
-    const double middle = h * h + z * z;
-    const Tilt full_low{lowest, 0, extruded ? -1.0 : 1.0}, full_high{pi, 0, -1};
-    if (square < narrow * narrow * middle) {
-        // The mean slopes lie in the box, so a cone about them as wide as its diagonal holds it.
-        const double spread = 1.1 * std::sqrt(square / middle);
-        const Tilt low = turned(mean, -spread), up = turned(mean, spread);
-        if (low.angle >= lowest && up.angle <= pi) return tables.wave_speed(row, low, up);
-    }
-    const bool holds_origin = b.h_low <= 0 && b.h_high >= 0 && b.z_low <= 0 && b.z_high >= 0;
-    if (holds_origin) return tables.wave_speed(row, full_low, full_high);
-    Tilt corner[4] = {tilt(b.h_low, b.z_low), tilt(b.h_low, b.z_high), tilt(b.h_high, b.z_low),
-                      tilt(b.h_high, b.z_high)};
-    std::sort(corner, corner + 4, [](const Tilt& a, const Tilt& c) { return a.angle < c.angle; });
-    const bool wraps = extruded && b.h_low < 0 && b.h_high > 0 && b.z_high < 0;
-    if (!wraps) return tables.wave_speed(row, corner[0], corner[3]);
-    // Facing down across +-pi: the tilts are those above the least positive and below the largest
-    // negative corner.
-    Tilt positive = full_high, negative = full_low;
-    for (const Tilt& t : corner) {
-        if (t.angle > 0 && t.angle < positive.angle) positive = t;
-        if (t.angle < 0 && t.angle > negative.angle) negative = t;
-    }
-    return most(tables.wave_speed(row, positive, full_high),
-                tables.wave_speed(row, full_low, negative));
-}
-
-std::array<double, 3> of_row(const RateTables& tables, int row, bool extruded, const Slopes& s,
-                             const Tilt& mean) {
-    if (row < 0) return {0, 0, 0};
-    double low[3], high[3];
-    for (int a = 0; a < 3; ++a) {
-        low[a] = least_magnitude(s.minus[a], s.plus[a]);
-        high[a] = most_magnitude(s.minus[a], s.plus[a]);
-    }
-    const auto share = [](double one, double other_square) {
-        const double square = one * one + other_square;
-        return square > 0 ? one / std::sqrt(square) : 0;
-    };
-    if (tables.constant(row)) {
-        const double rate = std::fabs(tables.rate(row, 0));
-        return {rate * share(high[0], low[1] * low[1] + low[2] * low[2]),
-                rate * share(high[1], low[0] * low[0] + low[2] * low[2]),
-                rate * share(high[2], low[0] * low[0] + low[1] * low[1])};
-    }
-    const WaveSpeed w = over_box(tables, row, extruded, box_of(extruded, s), mean);
-    if (extruded) return {w.horizontal, 0, w.vertical};
-    return {w.horizontal * share(high[0], low[1] * low[1]),
-            w.horizontal * share(high[1], low[0] * low[0]), w.vertical};
+/// arcsin(x) by its series, exact to rounding for |x| < 1/32.
+double short_arcsine(double x) {
+    const double q = x * x;
+    return x + x * q * (1.0 / 6 + q * (3.0 / 40 + q * (15.0 / 336 + q * (105.0 / 3456))));
 }
 
 } // namespace
 
 Tilt tilt_of(bool extruded, double gx, double gy, double gz) {
-    return tilt(extruded ? gx : std::sqrt(gx * gx + gy * gy), gz);
+    return exact_tilt(extruded ? gx : std::sqrt(gx * gx + gy * gy), gz);
 }
 
 RateTables::RateTables(const NormalRates& rates) : rates_(rates) {
@@ -141,6 +59,10 @@ RateTables::RateTables(const NormalRates& rates) : rates_(rates) {
             ++s;
         bin_.push_back(s);
     }
+    for (int b = 0; b <= turn_bins; ++b) {
+        const double turn = 2.0 * b / turn_bins;
+        marks_.push_back(exact_tilt(turn < 1 ? turn : 2 - turn, 1 - turn));
+    }
     constant_.resize(rows);
     for_ranges(rows, [&](std::size_t begin, std::size_t end) {
         for (std::size_t r = begin; r < end; ++r) {
@@ -154,6 +76,7 @@ int RateTables::segment(double angle) const {
     const int last = static_cast<int>(rates_.angles.size()) - 2;
     const int b = static_cast<int>((angle - rates_.angles.front()) * bins_per_radian_);
     int s = bin_[std::clamp(b, 0, static_cast<int>(bin_.size()) - 1)];
+    s += s < last && angle > rates_.angles[s + 1]; // one step without a branch that is hard to tell
     while (s < last && angle > rates_.angles[s + 1])
         ++s;
     while (s > 0 && angle < rates_.angles[s])
@@ -161,16 +84,59 @@ int RateTables::segment(double angle) const {
     return s;
 }
 
-WaveSpeed RateTables::wave_speed(int row, const Tilt& low, const Tilt& high) const {
+int RateTables::segment(const Tilt& t) const {
+    if (t.segment < 0) return segment(t.angle);
+    const int last = static_cast<int>(rates_.angles.size()) - 2;
+    int s = t.segment;
+    while (s < last && t.angle > rates_.angles[s + 1])
+        ++s;
+    while (s > 0 && t.angle < rates_.angles[s])
+        --s;
+    return s;
+}
+
+Tilt RateTables::tilt(double horizontal, double vertical, double& length) const {
+    Tilt t;
+    const double across = std::fabs(horizontal);
+    length = std::sqrt(horizontal * horizontal + vertical * vertical);
+    if (length > 0) {
+        const int bin = static_cast<int>(turn_of(across, vertical) * (0.5 * turn_bins));
+        const Tilt& mark = marks_[std::clamp(bin, 0, turn_bins)];
+
+        t.cosine = vertical / length;
+        t.sine = across / length;
+        const double beyond = t.sine * mark.cosine - t.cosine * mark.sine;
+        t.angle = std::copysign(mark.angle + short_arcsine(beyond), horizontal);
+        t.sine = std::copysign(t.sine, horizontal);
+    }
+    t.segment = segment(t.angle);
+    return t;
+}
+
+RateWindow RateTables::window(int row, double angle) const {
+    RateWindow out;
+    if (row < 0) return out;
+    const int n = static_cast<int>(rates_.angles.size());
+    out.row = row;
+    out.first =
+        static_cast<short>(std::clamp(segment(angle) - 2, 0, std::max(0, n - RateWindow::size)));
+    out.constant = constant(row);
+    out.moves = moves(row);
+    std::copy_n(values(row) + out.first, std::min(n, RateWindow::size), out.value);
+    return out;
+}
+
+WaveSpeed RateTables::wave_speed(int row, const Tilt& low, const Tilt& high,
+                                 const RateWindow& window) const {
     // H = R(t) rho with slopes (rho sin t, rho cos t): dH/d(horizontal) = R sin t + R' cos t and
     // dH/dz = R cos t - R' sin t; between nodes they are extremal where cos t or sin t vanishes.
-    const int first = segment(low.angle), last = segment(high.angle);
-    const double* v = values(row);
+    const int first = segment(low), last = segment(high);
+    const double* v = values(row, first, last, window);
     WaveSpeed out;
-    for (int s = first; s <= last; ++s) {
-        const double slope = (v[s + 1] - v[s]) * inverse_width_[s];
+    for (int s = first; s <= last; ++s, ++v) {
+        const double slope = (v[1] - v[0]) * inverse_width_[s];
         const auto take = [&](double angle, double sine, double cosine) {
-            const double rate = v[s] + slope * (angle - rates_.angles[s]);
+            const double rate = v[0] + slope * (angle - rates_.angles[s]);
             out.horizontal = std::max(out.horizontal, std::fabs(rate * sine + slope * cosine));
             out.vertical = std::max(out.vertical, std::fabs(rate * cosine - slope * sine));
         };
@@ -191,6 +157,117 @@ WaveSpeed RateTables::wave_speed(int row, const Tilt& low, const Tilt& high) con
     return out;
 }
 
+namespace {
+
+/// The box of slopes of a cell in polar form: horizontal magnitude against z.
+struct Box {
+    double h_low, h_high; ///< signed p in 2-D, magnitude of (p, q) in 3-D
+    double z_low, z_high;
+};
+
+double least_magnitude(double a, double b) {
+    return a * b <= 0 ? 0 : std::min(std::fabs(a), std::fabs(b));
+}
+double most_magnitude(double a, double b) {
+    return std::max(std::fabs(a), std::fabs(b));
+}
+
+/// `low` and `high` are the least and the largest magnitude along each axis.
+Box box_of(bool extruded, const Slopes& s, const double* low, const double* high) {
+    Box b;
+    b.z_low = std::min(s.minus[2], s.plus[2]);
+    b.z_high = std::max(s.minus[2], s.plus[2]);
+    if (extruded) {
+        b.h_low = std::min(s.minus[0], s.plus[0]);
+        b.h_high = std::max(s.minus[0], s.plus[0]);
+        return b;
+    }
+    b.h_low = std::sqrt(low[0] * low[0] + low[1] * low[1]);
+    b.h_high = std::sqrt(high[0] * high[0] + high[1] * high[1]);
+    return b;
+}
+
+Tilt turned(const Tilt& t, double by) {
+    const double c = 1 - 0.5 * by * by;
+    return {t.angle + by, t.sine * c + t.cosine * by, t.cosine * c - t.sine * by, t.segment};
+}
+
+WaveSpeed most(const WaveSpeed& a, const WaveSpeed& b) {
+    return {std::max(a.horizontal, b.horizontal), std::max(a.vertical, b.vertical)};
+}
+
+/// Wave speed over all tilts a box of slopes holds.
+WaveSpeed over_box(const RateTables& tables, int row, bool extruded, const Box& b, const Tilt& mean,
+                   const RateWindow& window) {
+    const double lowest = extruded ? -pi : 0;
+    const double wide = b.h_high - b.h_low, high = b.z_high - b.z_low;
+    const double square = wide * wide + high * high;
+    const double h = 0.5 * (b.h_low + b.h_high), z = 0.5 * (b.z_low + b.z_high);
+    const double middle = h * h + z * z;
+    if (square < narrow * narrow * middle) {
+        // The mean slopes lie in the box, so a cone about them as wide as its diagonal holds it.
+        const double spread = 1.1 * std::sqrt(square / middle);
+        const Tilt low = turned(mean, -spread), up = turned(mean, spread);
+        if (low.angle >= lowest && up.angle <= pi) return tables.wave_speed(row, low, up, window);
+    }
+    const Tilt full_low{lowest, 0, extruded ? -1.0 : 1.0, -1}, full_high{pi, 0, -1, -1};
+    const bool holds_origin = b.h_low <= 0 && b.h_high >= 0 && b.z_low <= 0 && b.z_high >= 0;
+    if (holds_origin) return tables.wave_speed(row, full_low, full_high, window);
+    Tilt corner[4] = {exact_tilt(b.h_low, b.z_low), exact_tilt(b.h_low, b.z_high),
+                      exact_tilt(b.h_high, b.z_low), exact_tilt(b.h_high, b.z_high)};
+    std::sort(corner, corner + 4, [](const Tilt& a, const Tilt& c) { return a.angle < c.angle; });
+    const bool wraps = extruded && b.h_low < 0 && b.h_high > 0 && b.z_high < 0;
+    if (!wraps) return tables.wave_speed(row, corner[0], corner[3], window);
+    // Facing down across +-pi: the tilts are those above the least positive and below the largest
+    // negative corner.
+    Tilt positive = full_high, negative = full_low;
+    for (const Tilt& t : corner) {
+        if (t.angle > 0 && t.angle < positive.angle) positive = t;
+        if (t.angle < 0 && t.angle > negative.angle) negative = t;
+    }
+    return most(tables.wave_speed(row, positive, full_high, window),
+                tables.wave_speed(row, full_low, negative, window));
+}
+
+std::array<double, 3> of_row(const RateTables& tables, int row, bool extruded, const Slopes& s,
+                             const Tilt& mean, const RateWindow& window) {
+    if (row < 0) return {0, 0, 0};
+    double low[3], high[3];
+    for (int a = 0; a < 3; ++a) {
+        low[a] = least_magnitude(s.minus[a], s.plus[a]);
+        high[a] = most_magnitude(s.minus[a], s.plus[a]);
+    }
+    const auto share = [](double one, double other_square) {
+        const double square = one * one + other_square;
+        return square > 0 ? one / std::sqrt(square) : 0;
+    };
+    if (tables.constant(row)) {
+        const double rate = std::fabs(tables.rate(row, 0));
+        return {rate * share(high[0], low[1] * low[1] + low[2] * low[2]),
+                rate * share(high[1], low[0] * low[0] + low[2] * low[2]),
+                rate * share(high[2], low[0] * low[0] + low[1] * low[1])};
+    }
+    const WaveSpeed w =
+        over_box(tables, row, extruded, box_of(extruded, s, low, high), mean, window);
+    if (extruded) return {w.horizontal, 0, w.vertical};
+    return {w.horizontal * share(high[0], low[1] * low[1]),
+            w.horizontal * share(high[1], low[0] * low[0]), w.vertical};
+}
+
+std::array<double, 3> dissipation(const RateTables& tables, const RowPair& rows,
+                                  const RateWindow& window, bool extruded, const Slopes& s,
+                                  const Tilt& mean) {
+    std::array<double, 3> a = of_row(tables, rows.row, extruded, s, mean, window);
+    if (rows.share > 0) {
+        const std::array<double, 3> other = of_row(tables, rows.other, extruded, s, mean, window);
+        for (int axis = 0; axis < 3; ++axis)
+            a[axis] += rows.share * (other[axis] - a[axis]);
+    }
+    return a;
+}
+
+} // namespace
+
 double upwind_steepness(const Slopes& s, bool recedes, double& waves) {
     double square = 0, sum = 0;
     for (int a = 0; a < 3; ++a) {
@@ -205,15 +282,19 @@ double upwind_steepness(const Slopes& s, bool recedes, double& waves) {
     return length;
 }
 
-std::array<double, 3> dissipation(const RateTables& tables, const RowPair& rows, bool extruded,
-                                  const Slopes& s, const Tilt& mean) {
-    std::array<double, 3> a = of_row(tables, rows.row, extruded, s, mean);
-    if (rows.share > 0) {
-        const std::array<double, 3> other = of_row(tables, rows.other, extruded, s, mean);
-        for (int axis = 0; axis < 3; ++axis)
-            a[axis] += rows.share * (other[axis] - a[axis]);
-    }
-    return a;
+double lax_friedrichs(const RateTables& tables, const RowPair& rows, const RateWindow& window,
+                      bool extruded, const Slopes& s, Speed& speed) {
+    const double gx = s.mean(0), gy = s.mean(1), gz = s.mean(2);
+    const double across = extruded ? gx : std::sqrt(gx * gx + gy * gy);
+    double length;
+    const Tilt mean = tables.tilt(across, gz, length);
+    speed.rate = tables.rate(rows, mean, window);
+    const std::array<double, 3> a = dissipation(tables, rows, window, extruded, s, mean);
+    speed.waves = a[0] + a[1] + a[2];
+    double sum = speed.rate * length;
+    for (int axis = 0; axis < 3; ++axis)
+        sum += 0.5 * a[axis] * (s.plus[axis] - s.minus[axis]);
+    return sum;
 }
 
 } // namespace rille::geometry

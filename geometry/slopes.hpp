@@ -4,7 +4,7 @@
 
 #include "geometry/band.hpp"
 
-#include <cmath>
+#include <algorithm>
 #include <cstddef>
 
 namespace rille::geometry {
@@ -17,9 +17,9 @@ struct Slopes {
     double mean(int axis) const { return 0.5 * (minus[axis] + plus[axis]); }
 };
 
+/// Of two values of one sign the one nearer to 0, else 0; without branches.
 inline double minmod(double a, double b) {
-    if (a * b <= 0) return 0;
-    return std::fabs(a) < std::fabs(b) ? a : b;
+    return std::max(0.0, std::min(a, b)) + std::min(0.0, std::max(a, b));
 }
 
 inline void slopes_along(const Band& band, const double* phi, std::size_t cell,
