@@ -12,9 +12,12 @@ constexpr double pi = 3.14159265358979323846;
 constexpr double elementary_charge = 1.602176634e-19;
 constexpr double atomic_mass = 1.66053906660e-27;
 
-/// Fourth-order steps of these lengths leave mean energies within 1e-4 and widths within 1e-3; a
-/// voltage with flanks needs more of them than its steepness alone would say.
+/// Fourth-order steps of these lengths leave mean energies within 1e-4 and widths within 1e-3. A
+/// voltage with flanks needs more of them than its steepness alone would say, but each flank is met
+/// at any place in a step, so that its errors cancel between ions.
 constexpr double steps_per_fall = 8, steps_per_period = 8, steps_per_steep_period = 14;
+constexpr double most_for_flanks = 128;
+constexpr double flank = 0.5; ///< turn per sample [rad] that no resolved sine makes
 
 void require(bool condition, const char* message) {
     if (!condition) throw std::invalid_argument(message);
@@ -32,10 +35,11 @@ double steps_in_period(const std::vector<double>& volt, double mean) {
         curvature += (next - 2 * here + last) * (next - 2 * here + last);
     }
     if (!(swing > 0 && slope > 0)) return steps_per_period;
-    const double turns = double(n) / (2 * pi);
-    return std::max(steps_per_period,
-                    turns * std::min(steps_per_steep_period * std::sqrt(slope / swing),
-                                     steps_per_period * std::sqrt(curvature / slope)));
+    const double turns = double(n) / (2 * pi), bend = std::sqrt(curvature / slope);
+    const double steep = turns * steps_per_steep_period * std::sqrt(slope / swing);
+    const double wanted = bend > flank ? std::min(steep, most_for_flanks)
+                                       : std::min(steep, turns * steps_per_period * bend);
+    return std::max(steps_per_period, wanted);
 }
 
 } // namespace

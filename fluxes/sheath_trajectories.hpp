@@ -24,6 +24,7 @@ struct TrajectorySampling {
 /// What came of the ions that entered a sheath: one ion each, and the fast neutrals that they left
 /// behind in charge exchange on their way. Fast neutrals fly straight to the wafer: collisions of
 /// their own are left out, so above about one mean free path they are too fast and too well aimed.
+/// Those that an ion left right after its birth are hardly fast; they are among them.
 /// Ions keep the order of their entry, an eighth of them per batch; batches are independent.
 struct Arrivals {
     std::vector<Arrival> ions;

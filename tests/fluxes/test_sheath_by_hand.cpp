@@ -35,6 +35,22 @@ double squared(const Vector& v) {
     return v[0] * v[0] + v[1] * v[1] + v[2] * v[2];
 }
 
+/// One collision with a gas of the ion's mass, even in the frame of the centre of mass.
+Vector bounced(const Vector& v, const Vector& gas, Dice& dice) {
+    const double cosine = 2 * dice() - 1, turn = 2 * sheath_pi * dice();
+    const double sine = std::sqrt(1 - cosine * cosine);
+    const Vector way = {sine * std::cos(turn), sine * std::sin(turn), cosine};
+    const Vector relative = {v[0] - gas[0], v[1] - gas[1], v[2] - gas[2]};
+    Vector after;
+    for (int k = 0; k < 3; ++k)
+        after[k] = 0.5 * (v[k] + gas[k] + std::sqrt(squared(relative)) * way[k]);
+    return after;
+}
+
+Arrival arrival(const Vector& v, double v1) {
+    return {squared(v) / (v1 * v1), std::hypot(v[0], v[1]) / v[2], 0};
+}
+
 /// Argon in argon through a Child sheath of fixed width, step by step: leapfrog steps of a
 /// two-hundredth of the period and of 0.005 of the fall, in each a chance 1 - exp(-n sigma v dt).
 Arrivals by_hand(const Sheath& sheath, double mtorr, double gas_k, int ions) {
@@ -63,23 +79,15 @@ Arrivals by_hand(const Sheath& sheath, double mtorr, double gas_k, int ions) {
             if (dice() > -std::expm1(-path * (backward + even))) continue;
             const Vector gas = {thermal * dice.normal(), thermal * dice.normal(),
                                 thermal * dice.normal()};
-            if (dice() * (backward + even) < backward) {
-                if (v[2] > 0 && z < s)
-                    result.fast_neutrals.push_back({energy, std::hypot(v[0], v[1]) / v[2], 0});
-                v = gas;
-                result.exchanges_per_ion += 1.0 / ions;
+            if (dice() * (backward + even) > backward) {
+                v = bounced(v, gas, dice);
                 continue;
             }
-            const double cosine = 2 * dice() - 1, turn = 2 * sheath_pi * dice();
-            const Vector way = {std::sqrt(1 - cosine * cosine) * std::cos(turn),
-                                std::sqrt(1 - cosine * cosine) * std::sin(turn), cosine};
-            Vector relative;
-            for (int k = 0; k < 3; ++k)
-                relative[k] = v[k] - gas[k];
-            for (int k = 0; k < 3; ++k)
-                v[k] = 0.5 * (v[k] + gas[k] + std::sqrt(squared(relative)) * way[k]);
+            if (v[2] > 0 && z < s) result.fast_neutrals.push_back(arrival(v, v1));
+            v = gas;
+            result.exchanges_per_ion += 1.0 / ions;
         }
-        result.ions.push_back({squared(v) / (v1 * v1), std::hypot(v[0], v[1]) / v[2], 0});
+        result.ions.push_back(arrival(v, v1));
     }
     return result;
 }

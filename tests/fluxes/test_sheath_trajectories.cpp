@@ -139,12 +139,15 @@ TEST_CASE("trajectories against fine steps", "[sheath]") {
                                {"moving edge, fast", swinging_sheath(2, 0.8, 20, 39.948)},
                                {"moving edge, between", swinging_sheath(2, 0.5, 3, 39.948)},
                                {"two frequencies", swinging_sheath(4 / 3., 0.5, 2, 39.948)},
-                               {"pulses", swinging_sheath(4 / 3., 0.5, 6, 39.948)}};
+                               {"pulses", swinging_sheath(4 / 3., 0.5, 6, 39.948)},
+                               {"fast pulses", swinging_sheath(4 / 3., 0.5, 30, 39.948)}};
     cases[4].sheath.edge = cases[5].sheath.edge = SheathEdge::moving;
     for (std::size_t i = 0; i < 1024; ++i) {
         cases[6].sheath.voltage.volt[i] += 60 * std::sin(2 * sheath_pi * 15 * double(i) / 1024);
         cases[7].sheath.voltage.volt[i] = i < 300 ? 450 : 100;
     }
+    cases[8].sheath.voltage.volt.assign(4096, 60);
+    std::fill_n(cases[8].sheath.voltage.volt.begin(), 900, 500);
     for (const Case& c : cases) {
         INFO(c.name);
         const auto fine = energy_figures(reference(c.sheath, argon_ion(), 256));
