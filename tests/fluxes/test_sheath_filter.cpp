@@ -54,6 +54,7 @@ TEST_CASE("slow sine: time spent at each voltage", "[sheath][filter]") {
     // The matrix sheath, V = Vmax [(1 - cos)/2]^2, by its three Fourier components.
     const Waveform matrix = Waveform::sum_of({{1e5, -0.5, 0}, {2e5, 0.125, 0}}).raised_by(0.375);
     const double cdf[4][2] = {{0.1, 0.380199}, {0.375, 0.572155}, {0.5, 0.635943}, {0.9, 0.854522}};
+    CHECK(matrix.mean() == Approx(3 / 8.).epsilon(1e-12));
     for (const auto& row : cdf)
         CHECK(std::fabs(time_shares(matrix, {-1, row[0]})[0] - row[1]) < 1e-6);
     const auto all = time_shares(slow, {50, 100, 200, 300, 350});
