@@ -135,6 +135,13 @@ double mean_sheath_from_power_v(double power_w, double delivered_fraction, doubl
     return delivered_fraction * power_w / (area_mm2 * 1e12 * ion_flux * 1.602176634e-19);
 }
 
+double ion_charging_v_per_s(double ion_flux, double capacitance_f_per_m2) {
+    require(std::isfinite(ion_flux) && ion_flux >= 0, "an ion flux must not be negative");
+    require(std::isfinite(capacitance_f_per_m2) && capacitance_f_per_m2 > 0,
+            "a capacitance must be above zero");
+    return ion_flux * 1e18 * 1.602176634e-19 / capacitance_f_per_m2;
+}
+
 WaferBias bias_from_voltage(const Waveform& applied, const BiasCircuit& circuit) {
     check(circuit);
     WaferBias bias;

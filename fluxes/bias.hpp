@@ -31,6 +31,11 @@ double electrical_asymmetry_v(const Waveform& applied, double sheath_ratio);
 double mean_sheath_from_power_v(double power_w, double delivered_fraction, double area_mm2,
                                 double ion_flux);
 
+/// By how much the ions raise an insulated wafer's surface [V/s], J / C with the capacitance per
+/// area of film, chuck and blocking capacitor in series [F/m^2]; a ramp as steep downwards holds
+/// the sheath voltage (Wang & Wendt 2000, from memory). flux [nm^-2 s^-1].
+double ion_charging_v_per_s(double ion_flux, double capacitance_f_per_m2);
+
 /// Wafer electrode behind a blocking capacitor.
 struct BiasCircuit {
     double electron_temperature_ev = 3;

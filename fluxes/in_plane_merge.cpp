@@ -60,15 +60,19 @@ void spread_bin(InPlane& to, const std::vector<InPlane::Node>& nodes, double a, 
 
 /// A piece of the quadrature as seen in the plane: from one in-plane angle to another.
 struct Piece {
-    double low, high, out_of_plane, energy, weight;
+    double low, high, out_of_plane, cosine, energy, weight;
 };
 
 Piece seen(const IonArc& arc) {
     constexpr double half_width = 1e-9; // of an arc that runs across the plane
     const double a = std::atan(arc.from.x / arc.from.z), b = std::atan(arc.to.x / arc.to.z);
     const double across = 0.5 * (arc.from.y + arc.to.y);
-    return {std::min(a, b) - half_width, std::max(a, b) + half_width,
-            std::asin(std::clamp(std::fabs(across), 0.0, 1.0)), arc.energy_ev, arc.weight};
+    return {std::min(a, b) - half_width,
+            std::max(a, b) + half_width,
+            std::asin(std::min(std::fabs(across), 1.0)),
+            std::sqrt(std::max(0.0, 1 - across * across)),
+            arc.energy_ev,
+            arc.weight};
 }
 
 double mean_slope(double low, double high) {
@@ -126,18 +130,24 @@ public:
         sums_.resize(bins * classes);
     }
 
-    void add(std::size_t bin, const Piece& piece, double weight, double slope) {
+    /// Where the sums of a piece are within a bin.
+    struct Slot {
+        int which, group;
+    };
+    Slot slot(const Piece& piece) const {
         int which = 0;
         while (which + 1 < classes && piece.out_of_plane > class_edge_[which])
             ++which;
-        Sum& sum = sums_[bin * classes + which];
+        const int group = static_cast<int>((std::sqrt(piece.energy) - low_) * scale_);
+        return {which, std::clamp(group, 0, groups - 1)};
+    }
+    void add(std::size_t bin, const Slot& slot, const Piece& piece, double weight, double slope) {
+        Sum& sum = sums_[bin * classes + slot.which];
         sum.weight += weight;
         sum.slope += weight * slope;
-        sum.cosine += weight * std::cos(piece.out_of_plane);
-        const auto group =
-            std::clamp(int((std::sqrt(piece.energy) - low_) * scale_), 0, groups - 1);
-        sum.share[group] += weight;
-        sum.energy[group] += weight * piece.energy;
+        sum.cosine += weight * piece.cosine;
+        sum.share[slot.group] += weight;
+        sum.energy[slot.group] += weight * piece.energy;
     }
 
     void finish(InPlane& plane) const {
@@ -202,14 +212,21 @@ InPlane from_arcs(const std::vector<IonArc>& arcs) {
     InPlane plane;
     plane.angle = quantile_edges(pieces);
     Collector collector(pieces, plane.angle.size() - 1);
+    std::vector<double> slope;
+    for (std::size_t b = 0; b + 1 < plane.angle.size(); ++b)
+        slope.push_back(mean_slope(plane.angle[b], plane.angle[b + 1]));
     for (const Piece& piece : pieces) {
+        const Collector::Slot slot = collector.slot(piece);
+        const double density = piece.weight / (piece.high - piece.low);
         const auto first = std::upper_bound(plane.angle.begin(), plane.angle.end(), piece.low);
         std::size_t bin = first == plane.angle.begin() ? 0 : first - plane.angle.begin() - 1;
         for (; bin + 1 < plane.angle.size() && plane.angle[bin] < piece.high; ++bin) {
             const double low = std::max(piece.low, plane.angle[bin]);
             const double high = std::min(piece.high, plane.angle[bin + 1]);
-            const double part = (high - low) / (piece.high - piece.low);
-            if (part > 0) collector.add(bin, piece, piece.weight * part, mean_slope(low, high));
+            if (!(high > low)) continue;
+            const bool whole = low == plane.angle[bin] && high == plane.angle[bin + 1];
+            collector.add(bin, slot, piece, density * (high - low),
+                          whole ? slope[bin] : mean_slope(low, high));
         }
     }
     collector.finish(plane);

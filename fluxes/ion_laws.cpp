@@ -167,17 +167,17 @@ struct ShareWithin {
         return sum;
     }
     double operator()(const TiltedIons& law) const {
-        const auto slope = [](const Vec3& d) { return std::hypot(d.x, d.y) / -d.z; };
         double sum = 0;
-        for (const IonArc& arc : *law.arcs) {
+        for (std::size_t i = 0; i < law.arcs->size(); ++i) {
             // Half an arc at a time: the one nearest to the normal may lie in the middle.
-            const double middle = slope(arc.from + arc.to);
-            for (double end : {slope(arc.from), slope(arc.to)}) {
+            const double half = 0.5 * (*law.arcs)[i].weight;
+            const auto [from, middle, to] = (*law.tangents)[i];
+            for (double end : {from, to}) {
                 const double low = std::min(middle, end), high = std::max(middle, end);
                 if (tangent >= high)
-                    sum += 0.5 * arc.weight;
+                    sum += half;
                 else if (tangent > low)
-                    sum += 0.5 * arc.weight * (tangent - low) / (high - low);
+                    sum += half * (tangent - low) / (high - low);
             }
         }
         return sum;

@@ -59,6 +59,8 @@ struct TiltedIons {
     Lean lean;
     double kept; ///< share of the turned ions that still fly down
     std::shared_ptr<const std::vector<IonArc>> arcs; ///< of the turned and kept ions, sum 1
+    /// Tangents of the polar angles at both ends and in the middle of each arc.
+    std::shared_ptr<const std::vector<std::array<double, 3>>> tangents;
 };
 using IonLaw = std::variant<ThermalFall, IonHistogram, IonBeam, GaussianSlopes, FallingSpectrum,
                             IonMixture, TiltedIons>;

@@ -188,8 +188,10 @@ IonDistribution damped_arrival(const Sheath& sheath, const SheathIon& ion) {
     const double transit = transit_time_s(sheath, ion.mass_amu);
     const Gains gains = gains_of(sheath, transit);
     const double limit = damping_limit(sheath);
+    const bool child =
+        sheath.edge == SheathEdge::fixed && std::fabs(sheath.profile_power - 4 / 3.) < 1e-9;
     Waveform energy = filtered(sheath.voltage, transit, [&](double omega_tau) {
-        const double width = sheath.edge == SheathEdge::fixed ? shape_at(omega_tau).width : 1;
+        const double width = child ? shape_at(omega_tau).width : 1;
         return width * damping(omega_tau, limit);
     });
     // A step overshoots by up to 1 %, which no ion can.

@@ -40,7 +40,11 @@ std::vector<double> time_shares(const Waveform&, const std::vector<double>& edge
 /// the electron temperature; the spread in angle is thermal. Beyond the damping it carries what
 /// trajectories show: the mean of `mean_gain`, brought in by a power of the energy on the arrivals,
 /// and small corrections of the middle (up to 9 % of the mean voltage) and the width (up to 6 %),
-/// tabulated over omega tau_i and added up over the Fourier components. Throws
+/// tabulated over omega tau_i and added up over the Fourier components. Against trajectories in a
+/// Child sheath: mean energy within 1 %, width between 5 and 95 % of the ions within 10 %, median
+/// angle within 5 %. Not so for other fields: widths up to 13 % off with x^2, and with a moving
+/// edge up to a third too wide near omega tau_i = 2, where the ions bunch most; the mean still
+/// holds. Of pulses as short as the transit time the low tail is only told by a factor. Throws
 /// std::invalid_argument on a sheath that cannot be.
 IonDistribution damped_arrival(const Sheath&, const SheathIon&);
 

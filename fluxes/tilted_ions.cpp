@@ -127,7 +127,7 @@ Lean lean_towards(double tilt_deg, double azimuth_deg) {
 
 TiltedIons tilt_ions(const IonDistribution& upright, double tilt_deg, double azimuth_deg) {
     TiltedIons tilted{upright, tilt_deg, azimuth_deg, lean_towards(tilt_deg, azimuth_deg),
-                      0.0,     nullptr};
+                      0.0,     nullptr,  nullptr};
     auto kept = std::make_shared<std::vector<IonArc>>();
     double all = 0, sum = 0;
     for (IonArc arc : upright.arcs()) {
@@ -138,8 +138,14 @@ TiltedIons tilt_ions(const IonDistribution& upright, double tilt_deg, double azi
         sum += arc.weight;
         kept->push_back(arc);
     }
-    for (IonArc& arc : *kept)
+    const auto tangent = [](const Vec3& d) { return std::sqrt(d.x * d.x + d.y * d.y) / -d.z; };
+    auto tangents = std::make_shared<std::vector<std::array<double, 3>>>();
+    tangents->reserve(kept->size());
+    for (IonArc& arc : *kept) {
         arc.weight /= sum;
+        tangents->push_back({tangent(arc.from), tangent(arc.from + arc.to), tangent(arc.to)});
+    }
+    tilted.tangents = std::move(tangents);
     tilted.kept = sum == all ? 1.0 : sum / all;
     tilted.arcs = std::move(kept);
     return tilted;

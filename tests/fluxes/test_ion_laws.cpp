@@ -198,6 +198,30 @@ TEST_CASE("tilted ions lean the way they are told", "[ions][laws]") {
     CHECK(a != c);
 }
 
+TEST_CASE("beams stay beams inside a mixture", "[ions][laws]") {
+    // Oracle: steps of the beams' shares at their own angles, Gaussian slopes elsewhere; the same
+    //         after a tilt.
+    // Source: the definition of a mixture. Tolerance: 1e-4.
+    const auto upright = IonDistribution::beam(100, Vec3(0, 0, -1));
+    const auto leaning = IonDistribution::beam(70, Vec3(0.1, 0, -1));
+    const double sigma = 0.05;
+    const auto mixed = IonDistribution::mixture(
+        {1, 1, 2}, {upright, leaning, IonDistribution::gaussian(50, sigma)});
+    const InPlane& plane = mixed.in_plane();
+    for (double phi : {-0.2, -0.0998, -0.0995, -0.01, -1e-6, 1e-6, 0.01, 0.2}) {
+        const double expected = 0.25 * (phi > -std::atan(0.1)) + 0.25 * (phi > 0) +
+                                0.25 * std::erfc(-std::tan(phi) / sigma / std::sqrt(2.0));
+        CAPTURE(phi);
+        CHECK(std::fabs(plane.share_below(phi) - expected) < 1e-4);
+    }
+    CHECK(plane.moment.back() == Approx(-0.025).epsilon(1e-6));
+    CHECK(mixed.mean_energy_ev() == Approx(67.5).epsilon(1e-12));
+    const IonDistribution turned = mixed.tilted(3, 0);
+    const InPlane& tilted = turned.in_plane();
+    CHECK(tilted.share_below(-3 * degree + 1e-5) - tilted.share_below(-3 * degree - 1e-5) ==
+          Approx(0.25).margin(1e-3));
+}
+
 TEST_CASE("bundles of different width are all known", "[ions][laws]") {
     // Oracle: each part of a mixture reports its own spread.
     // Source: the definition of a mixture.

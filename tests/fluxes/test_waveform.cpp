@@ -150,3 +150,12 @@ TEST_CASE("mean sheath voltage from the power on the wafer", "[waveform][bias]")
     CHECK_THROWS_AS(mean_sheath_from_power_v(500, 0, 7e4, flux), std::invalid_argument);
     CHECK_THROWS_AS(mean_sheath_from_power_v(500, 0.5, 0, flux), std::invalid_argument);
 }
+
+TEST_CASE("ions charge an insulated wafer", "[waveform][bias]") {
+    // Oracle: 26.158 A/m^2 on 1e-5 F/m^2: 2.6158e6 V/s; on 1e-4: 0.26 V/us. Source: charge balance;
+    // use for ramps by Wang & Wendt (2000), from memory. Tolerance: 1e-9.
+    const double flux = 26.158 / 1.602176634e-19 * 1e-18;
+    CHECK(ion_charging_v_per_s(flux, 1e-5) == Approx(2.6158e6).epsilon(1e-9));
+    CHECK(ion_charging_v_per_s(flux, 1e-4) == Approx(0.26158e6).epsilon(1e-9));
+    CHECK_THROWS_AS(ion_charging_v_per_s(flux, 0), std::invalid_argument);
+}
