@@ -14,12 +14,12 @@ enum class SheathWay {
     trajectories ///< followed one by one
 };
 
-/// Thickness over mean free path above which the closed forms, which know no collisions, are
-/// refused.
-constexpr double collisionless_below = 0.1;
+/// Thickness over mean free path `a` above which the closed forms, which know no collisions, are
+/// refused: charge exchange takes a / (m + 1) of the mean energy (first order of Davis and
+/// Vanderslice, derived), which is 1 % here and would be 4 % at a = 0.1.
+constexpr double collisionless_below = 0.023;
 
-/// Chooses: collisions count where the thickness exceeds a tenth of the mean free path, and then
-/// ions are followed one by one; so they are under a moving edge, for which no closed form holds.
+/// Chooses: where collisions count ions are followed one by one; so they are under a moving edge.
 SheathWay way_through(const Sheath&, const SheathIon&);
 
 /// What one ion species brings to the wafer.

@@ -31,7 +31,7 @@ void lay_out(const std::string& folder) {
         REQUIRE(at != std::string::npos);
         text.replace(at, old.size(), now);
     };
-    replace("rf_bias: {mean_sheath: 120 V}",
+    replace("rf_bias: {frequency: 13.56 MHz, amplitude: 115 V}",
             "ion_energies: {Cl2+: {file: a/ions.csv}, Ar+: {file: b/ions.csv}}");
     replace("chemistry: silicon-cl2-ar", "chemistry: own.yaml");
     put(folder + "/case.yaml", text);

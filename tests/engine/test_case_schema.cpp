@@ -35,6 +35,8 @@ Json value_of(const YamlNode& node) {
         return node.text == "true";
     if (!node.is_quoted && std::regex_match(node.text, std::regex("-?[0-9]+")))
         return std::stoll(node.text);
+    if (!node.is_quoted && std::regex_match(node.text, std::regex("-?[0-9]+\\.[0-9]+")))
+        return std::stod(node.text);
     return node.text;
 }
 

@@ -5,7 +5,6 @@
 
 #include <catch2/catch.hpp>
 
-#include <chrono>
 
 using namespace rille;
 using namespace rille::geometry;
@@ -163,23 +162,4 @@ TEST_CASE("a round via keeps its rim", "[surface]") {
         }
         CHECK(std::count(seen.begin(), seen.end(), 1) == 36);
     }
-}
-
-TEST_CASE("contouring is quick", "[surface][timing]") {
-    // 200,000 surface cells in well under 0.3 s; the limit leaves room for a busy machine.
-    const Domain d = full(400, 400, 1.0);
-    const auto wave = [&](const Vec3& p) {
-        return 0.9 * (p.z - 6 * std::cos(p.x * M_PI / 40) * std::cos(p.y * M_PI / 50));
-    };
-    const geometry::Band band = make_band(d, wave, -7, 7);
-    double best = 1e9;
-    std::size_t elements = 0;
-    for (int n = 0; n < 3; ++n) {
-        const auto start = std::chrono::steady_clock::now();
-        elements = extract_surface(band).size();
-        best = std::min(
-            best, std::chrono::duration<double>(std::chrono::steady_clock::now() - start).count());
-    }
-    WARN(elements << " elements of " << band.size() << " nodes in " << best << " s");
-    CHECK(best < 1.5);
 }
