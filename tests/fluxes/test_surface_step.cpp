@@ -11,7 +11,6 @@
 #include <catch2/catch.hpp>
 #include <tbb/global_control.h>
 
-#include <chrono>
 #include <cmath>
 #include <cstring>
 
@@ -281,22 +280,6 @@ TEST_CASE("surface step without ions or without neutrals", "[surface_step]") {
         for (const auto& batch : b.rate_batch)
             CHECK(batch[e] == Approx(b.response[e].rate));
     CHECK(b.response[0].rate > 0);
-}
-
-TEST_CASE("surface step: time of a call", "[surface_step][long]") {
-    // Oracle: none; a record of the cost with 1,000 elements, two neutrals and 64 rays.
-    // Source: measured here.
-    // Tolerance: 60 ms on two free cores is the goal; only ten times that fails.
-    const Scene scene(40, 11, true);
-    double best = 1e300;
-    for (int i = 0; i < 5; ++i) {
-        const auto start = std::chrono::steady_clock::now();
-        const SurfaceStep step = scene.solve();
-        const std::chrono::duration<double> taken = std::chrono::steady_clock::now() - start;
-        best = std::min(best, taken.count());
-    }
-    WARN(scene.surface.size() << " elements: " << 1e3 * best << " ms");
-    CHECK(best < 0.6);
 }
 
 TEST_CASE("reflected ions join the direct ones", "[surface_step]") {

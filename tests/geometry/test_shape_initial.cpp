@@ -4,7 +4,6 @@
 
 #include <catch2/catch.hpp>
 
-#include <chrono>
 #include <cmath>
 #include <random>
 
@@ -177,23 +176,4 @@ TEST_CASE("distance to an ellipse", "[shape]") {
             CHECK(ellipse_distance(y, x, b, 1) == ellipse_distance(x, y, 1, b));
             CHECK((ellipse_distance(x, y, 1, b) < 0) == (x * x + y * y / b / b < 1));
         }
-}
-
-TEST_CASE("initial distances are cheap", "[shape][timing]") {
-    const Domain d = domain(Symmetry::full, Sides::mirror, 100, 100, 1.0);
-    MaskShape mask;
-    mask.thickness = 30;
-    mask.sidewall_angle_deg = 89;
-    mask.openings = {{"r", Opening::Shape::round, 30, 0, 5, 3},
-                     {"e", Opening::Shape::elliptic, 20, 12, -25, -20}};
-    const auto phi = initial_distance(d, mask);
-    const auto start = std::chrono::steady_clock::now();
-    double sum = 0;
-    for (int n = 0; n < 1000000; ++n)
-        sum += phi(d.node(n % 100, (n / 100) % 100, n / 10000 - 20));
-    const double seconds =
-        std::chrono::duration<double>(std::chrono::steady_clock::now() - start).count();
-    WARN("one million distances in " << seconds << " s");
-    CHECK(std::isfinite(sum));
-    CHECK(seconds < 2);
 }

@@ -5,7 +5,6 @@
 
 #include <catch2/catch.hpp>
 
-
 using namespace rille;
 using namespace rille::geometry;
 using namespace rille::tests;

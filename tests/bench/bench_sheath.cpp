@@ -1,0 +1,41 @@
+// SPDX-License-Identifier: Apache-2.0
+// Ions through a sheath: the closed form against trajectories, in one process on one thread, with
+// the times of both beside the ratio.
+#include "timing.hpp"
+
+#include "fluxes/sheath_filter.hpp"
+#include "fluxes/sheath_trajectories.hpp"
+
+#include <cmath>
+#include <iostream>
+#include <nlohmann/json.hpp>
+#include <tbb/global_control.h>
+
+using namespace rille;
+using namespace rille::fluxes;
+
+int main() {
+    const tbb::global_control one(tbb::global_control::max_allowed_parallelism, 1);
+    constexpr double edge_density = 6.065e-11; // argon of 1e11 /cm3 [nm^-3]
+    const Waveform voltage = Waveform::sum_of({{13.56e6, 150, 0}}).raised_by(200);
+    const Sheath sheath = make_sheath(3, edge_density, voltage, HUGE_VAL).sheath;
+    SheathIon argon;
+    argon.name = "Ar+";
+    argon.mass_amu = 39.948;
+    const TrajectorySampling sampling{100000, 1};
+    double mean_a = 0, mean_b = 0;
+    const bench::Comparison c = bench::compare(
+        5, [&] { mean_a = damped_arrival(sheath, argon).mean_energy_ev(); },
+        [&] {
+            mean_b = distribution_of(follow_ions(sheath, argon, sampling).ions).mean_energy_ev();
+        });
+    const nlohmann::json line = {
+        {"bench", "sheath"},
+        {"ratio", c.ratio},
+        {"closed_form_ms", 1e3 * c.ours},
+        {"trajectories_100000_s", c.theirs},
+        {"mean_energy_closed_eV", mean_a},
+        {"mean_energy_trajectories_eV", mean_b},
+        {"note", "time of 100,000 trajectories over that of the closed form"}};
+    std::cout << line.dump() << std::endl;
+}
