@@ -36,6 +36,17 @@ public:
     static IonDistribution histogram(std::vector<double> energy_edges_ev,
                                      std::vector<double> angle_edges_deg,
                                      std::vector<std::vector<double>> weight);
+    /// Ions that fell through a sheath: energy of the motion along the normal in bins (uniform
+    /// inside a bin, `share` sums to 1 after normalising), transverse energy exponential with
+    /// `transverse_ev`. Edges strictly increasing and >= 0. Throws std::invalid_argument.
+    static IonDistribution falling_spectrum(std::vector<double> normal_energy_edges_ev,
+                                            std::vector<double> share, double transverse_ev);
+    /// Flux-weighted sum of distributions; weights >= 0, not all zero, normalised to sum 1.
+    static IonDistribution mixture(std::vector<double> weight, std::vector<IonDistribution>);
+    /// The same ions leaning by `tilt_deg` (0 to 45) from the wafer normal, towards `azimuth_deg`
+    /// from +x to +y: an ion along the normal then travels towards that azimuth. What would come
+    /// from below the wafer plane is dropped and the rest normalised.
+    IonDistribution tilted(double tilt_deg, double azimuth_deg) const;
     /// All ions at one energy along one direction (tests, tilted beams). Needs direction.z < 0.
     static IonDistribution beam(double energy_ev, const Vec3& direction);
     /// Slopes tan(theta_x), tan(theta_y) normal with standard deviation tan_sigma, one energy.

@@ -146,7 +146,7 @@ TEST_CASE("valley converges to the hull solution", "[advance][facet]") {
     CHECK(std::log2(a.mean / 10 / (b.mean / 20)) >= 0.6);
 }
 
-TEST_CASE("wide facets keep their error in cells", "[advance][facet][long]") {
+TEST_CASE("wide facets keep their error in cells", "[advance][facet]") {
     // Oracle, source, tolerance: as above at a facet width of 40 cells.
     const FacetErrors r = ridge(40, 0.3), v = valley(40, 0.3), half = ridge(20, 0.3);
     CAPTURE(r.mean, r.most, v.mean, v.most);

@@ -123,7 +123,7 @@ TEST_CASE("beam and isotropic rate make a straight wedge", "[advance][mask]") {
     }
 }
 
-TEST_CASE("a deep wedge stays straight", "[advance][mask][long]") {
+TEST_CASE("a deep wedge stays straight", "[advance][mask]") {
     // Oracle, source: as above with (a, b) = (0.02, 0.98), depth 200 cells. Tolerance: as above.
     const WedgeErrors e = wedge(0.02, 200, 0.3, 0.3);
     CAPTURE(e.wall, e.foot, e.floor);
