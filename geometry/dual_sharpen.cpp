@@ -3,6 +3,8 @@
 #include "geometry/dual_mesh.hpp"
 #include "geometry/ranges.hpp"
 
+#include <tbb/enumerable_thread_specific.h>
+
 #include <algorithm>
 #include <cmath>
 
@@ -18,6 +20,13 @@ constexpr double laid_together = -0.8; ///< cosine between two elements that mee
 constexpr double folded_area = 0.02;   ///< [cells^2] twice the area of an element that matters
 constexpr double reach = 4.2;          ///< [cells] faces are fitted within
 
+/// What a search over the mesh has come by: the vertex it started from, for each vertex and quad.
+struct Seen {
+    std::vector<int> vertex, quad, queue;
+    Seen() = default;
+    Seen(std::size_t vertices, std::size_t quads) : vertex(vertices, -1), quad(quads, -1) {}
+};
+
 class Sharpener {
 public:
     Sharpener(const Band& band, DualMesh& mesh)
@@ -29,10 +38,12 @@ public:
         for (int v = 0; v < static_cast<int>(sharp_.size()); ++v)
             if (sharp_[v]) work.push_back(v);
         std::vector<Vec3> moved(work.size());
+        tbb::enumerable_thread_specific<Seen> seen_of_thread;
         over_ranges(work.size(), 512, [&](std::size_t first, std::size_t last) {
-            std::vector<int> stamp(mesh_.position.size(), -1);
+            Seen& seen = seen_of_thread.local();
+            if (seen.vertex.empty()) seen = {mesh_.position.size(), mesh_.quads.size()};
             for (std::size_t n = first; n < last; ++n)
-                moved[n] = settle(work[n], stamp);
+                moved[n] = settle(work[n], seen);
         });
         const std::vector<Vec3> blunt = mesh_.position;
         for (std::size_t n = 0; n < work.size(); ++n)
@@ -100,8 +111,8 @@ private:
                 double least = 1;
                 for (int w : v)
                     least = std::min(least, turn_[w]);
-                const double turn = std::acos(std::clamp(least, -1.0, 1.0)) / bent;
-                trust_[n] = 1 / (1 + turn * turn * turn * turn);
+                const double turn = 2 * (1 - least) / (bent * bent); // squared
+                trust_[n] = 1 / (1 + turn * turn);
             }
         });
         over_ranges(vertices, 4096, [&](std::size_t first, std::size_t last) {
@@ -126,33 +137,34 @@ private:
     }
 
     /// Quads within `reach` of vertex v, reached over the surface.
-    std::vector<FaceSample> samples_near(int v, std::vector<int>& stamp) const {
+    std::vector<FaceSample> samples_near(int v, Seen& seen) const {
         std::vector<FaceSample> samples;
-        std::vector<int> queue{v};
+        samples.reserve(96);
+        seen.queue.assign(1, v);
         const Vec3 here = mesh_.position[v];
-        stamp[v] = v;
-        for (std::size_t at = 0; at < queue.size(); ++at)
-            for (int a = mesh_.first[queue[at]]; a < mesh_.first[queue[at] + 1]; ++a) {
-                const DualQuad& q = mesh_.quads[mesh_.round[a]];
-                bool first = true; // a quad is taken when its first vertex comes up
-                for (int w : q.vertex) {
-                    if (stamp[w] == v) {
-                        const auto place = std::find(queue.begin(), queue.begin() + at, w);
-                        first = first && place == queue.begin() + at;
-                        continue;
-                    }
-                    stamp[w] = v;
-                    if (between(band_.domain, here, mesh_.position[w]).length() < reach * h_)
-                        queue.push_back(w);
+        const double most = reach * reach * h_ * h_;
+        seen.vertex[v] = v;
+        for (std::size_t at = 0; at < seen.queue.size(); ++at) {
+            const int from = seen.queue[at];
+            for (int a = mesh_.first[from]; a < mesh_.first[from + 1]; ++a) {
+                const int n = mesh_.round[a];
+                if (seen.quad[n] == v) continue;
+                seen.quad[n] = v;
+                for (int w : mesh_.quads[n].vertex) {
+                    if (seen.vertex[w] == v) continue;
+                    seen.vertex[w] = v;
+                    if (between(band_.domain, here, mesh_.position[w]).length2() < most)
+                        seen.queue.push_back(w);
                 }
-                if (!first || mesh_.normal[mesh_.round[a]].length2() < 0.5) continue;
+                const Vec3 apart = between(band_.domain, here, mesh_.crossing[n]);
+                if (apart.length2() > most || mesh_.normal[n].length2() < 0.5) continue;
                 FaceSample s;
-                s.point = between(band_.domain, here, mesh_.crossing[mesh_.round[a]]) / h_;
-                if (s.point.length() > reach) continue;
-                s.normal = mesh_.normal[mesh_.round[a]];
-                s.trust = trust_[mesh_.round[a]];
+                s.point = apart / h_;
+                s.normal = mesh_.normal[n];
+                s.trust = trust_[n];
                 samples.push_back(s);
             }
+        }
         return samples;
     }
 
@@ -222,9 +234,9 @@ private:
         return p;
     }
 
-    Vec3 settle(int v, std::vector<int>& stamp) const {
+    Vec3 settle(int v, Seen& seen) const {
         const Vec3 here = mesh_.position[v];
-        std::vector<FaceSample> samples = samples_near(v, stamp);
+        std::vector<FaceSample> samples = samples_near(v, seen);
         LocalSolid solid;
         if (!find_faces(samples, solid)) return here;
         const CrossedCell cell = crossed_cell(band_, mesh_, v);

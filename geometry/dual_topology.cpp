@@ -11,6 +11,12 @@ namespace {
 
 constexpr std::size_t grain = 16384;
 
+/// Set bits of a mask of four.
+int bits_in(int mask) {
+    static constexpr std::int8_t count[16] = {0, 1, 1, 2, 1, 2, 2, 3, 1, 2, 2, 3, 2, 3, 3, 4};
+    return count[mask & 15];
+}
+
 /// Variants of the dual cell above a node: bit 0 the half cell below it in x, bit 1 in y.
 class Topology {
 public:
@@ -34,7 +40,7 @@ public:
     }
 
 private:
-    bool gas(int node) const { return band_.phi[node] >= 0; }
+    bool gas(int node) const { return gas_[node]; }
 
     /// Whether grid edges along `axis` leave this node (not across a mirror side).
     bool has_edge(int node, int axis) const {
@@ -59,20 +65,45 @@ private:
     }
 
     void mark() {
-        over_ranges(band_.size(), grain, [&](std::size_t first, std::size_t last) {
+        // Of the cube above a node: all gas, all solid, crossed or not all in the band; built up
+        // axis by axis, so that each node asks three others only.
+        constexpr std::uint8_t crossed = 2, missing = 3; // 0, 1: all solid, all gas
+        const auto join = [](std::uint8_t a, std::uint8_t b) -> std::uint8_t {
+            return a == missing || b == missing ? missing : a == b ? a : crossed;
+        };
+        const std::size_t size = band_.size();
+        std::vector<std::uint8_t> state(size), next(size);
+        gas_.resize(size);
+        over_ranges(size, grain, [&](std::size_t first, std::size_t last) {
             for (std::size_t n = first; n < last; ++n)
-                mark(static_cast<int>(n));
+                state[n] = gas_[n] = band_.phi[n] >= 0;
+        });
+        for (int axis = 0; axis < 3; ++axis) {
+            over_ranges(size, grain, [&](std::size_t first, std::size_t last) {
+                for (std::size_t n = first; n < last; ++n) {
+                    const int up = band_.neighbour[n][2 * axis + 1];
+                    next[n] = up < 0 ? missing : join(state[n], state[up]);
+                    if (up < 0 || gas_[n] == gas_[up]) continue;
+                    if (has_edge(static_cast<int>(n), axis)) edge_mask_[n] |= 1 << axis;
+                }
+            });
+            state.swap(next);
+        }
+        over_ranges(size, grain, [&](std::size_t first, std::size_t last) {
+            for (std::size_t n = first; n < last; ++n) {
+                cell_mask_[n] = state[n] == crossed;
+                const auto& c = band_.cells[n];
+                if (mirror_ && (c.i == 0 || c.j == 0)) mark_half_cells(static_cast<int>(n));
+            }
         });
     }
 
-    void mark(int node) {
-        for (int axis = 0; axis < 3; ++axis)
-            if (has_edge(node, axis) && gas(node) != gas(band_.neighbour[node][2 * axis + 1]))
-                edge_mask_[node] |= 1 << axis;
+    /// Cells between a lower mirror side and its nodes.
+    void mark_half_cells(int node) {
         const auto& c = band_.cells[node];
-        for (int variant = 0; variant < 4; ++variant) {
-            if ((variant & 1) && !(mirror_ && c.i == 0)) continue;
-            if ((variant & 2) && !(mirror_ && c.j == 0)) continue;
+        for (int variant = 1; variant < 4; ++variant) {
+            if ((variant & 1) && c.i != 0) continue;
+            if ((variant & 2) && c.j != 0) continue;
             const auto corner = corners(node, variant);
             bool full = true, crossed = false;
             for (int m : corner) {
@@ -89,8 +120,8 @@ private:
         std::size_t cells = 0, quads = 0;
         for (std::size_t n = 0; n < band_.size(); ++n) {
             cell_start_[n] = static_cast<int>(cells);
-            cells += __builtin_popcount(cell_mask_[n]);
-            quads += __builtin_popcount(edge_mask_[n]);
+            cells += bits_in(cell_mask_[n]);
+            quads += bits_in(edge_mask_[n]);
         }
         mesh_.cells.reserve(cells);
         mesh_.quads.reserve(quads);
@@ -196,8 +227,7 @@ private:
                 RILLE_CHECK(node >= 0, "the band is too narrow at the front");
             }
             RILLE_CHECK(cell_mask_[node] >> variant & 1, "the band is too narrow at the front");
-            const int number =
-                cell_start_[node] + __builtin_popcount(cell_mask_[node] & ((1 << variant) - 1));
+            const int number = cell_start_[node] + bits_in(cell_mask_[node] & ((1 << variant) - 1));
             const DualCell& cell = mesh_.cells[number];
             const int slot = quad.up ? m : 3 - m;
             quad.vertex[slot] = cell.first_vertex + cell.loop[edge_number(quad.axis, back[m])];
@@ -207,7 +237,7 @@ private:
 
     const Band& band_;
     bool mirror_;
-    std::vector<std::uint8_t> cell_mask_, edge_mask_;
+    std::vector<std::uint8_t> gas_, cell_mask_, edge_mask_;
     std::vector<int> cell_start_;
     DualMesh mesh_;
 };

@@ -63,7 +63,7 @@ void add_vertices(const Band& band, const DualMesh& mesh, Surface& s) {
             for (int m = 0; m < 4; ++m) {
                 const DualQuad& q = mesh.quads[n];
                 const int below = used[q.vertex[m]] & ((1 << q.image[m]) - 1);
-                s.corners[n][m] = start[q.vertex[m]] + __builtin_popcount(below);
+                s.corners[n][m] = start[q.vertex[m]] + (below == 0 ? 0 : __builtin_popcount(below));
             }
     });
 }
