@@ -113,7 +113,7 @@ private:
     geometry::Front front_;
     geometry::Surface surface_;
     geometry::GrownFilms films_;
-    geometry::FilmBases bases_; ///< one per grown film
+    geometry::FilmBases bases_;                        ///< one per grown film
     std::vector<geometry::SurfaceField> error_fields_; ///< one per batch
     fluxes::SurfaceStep present_;
     bool present_valid_ = false;

@@ -11,8 +11,8 @@ namespace rille::geometry {
 namespace {
 
 constexpr std::size_t grain = 2048;
-constexpr double narrow = 1.6; ///< [mean element sizes] values are taken from within
-constexpr double wide = 3.0;   ///< [mean element sizes] corrections are spread over
+constexpr double narrow = 1.8; ///< [mean element sizes] values are taken from within
+constexpr double wide = 3.5;   ///< [mean element sizes] corrections are spread over
 
 /// New values are weighted means of the old ones that moved next to them. What a per-area amount
 /// then lacks or has too much is spread over the neighbourhood in proportion to what lies there, so
@@ -50,11 +50,13 @@ private:
         return out;
     }
 
+    /// By area, so that small elements, of which there are many next to each other, count for no
+    /// more than they hold.
     double weight(int e, int j, const Vec3& d, double radius) const {
         const double facing = from_.normal[e].dot(to_.normal[j]);
         if (facing <= 0) return 0;
         const double t = 1 - d.length() / (radius * size_);
-        return t <= 0 ? 0 : facing * t * t;
+        return t <= 0 ? 0 : facing * t * t * from_.area[e] / (size_ * size_);
     }
 
     /// Sum of weights of each new element; `single_` where one old element alone counts.

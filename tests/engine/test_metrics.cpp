@@ -130,7 +130,7 @@ TEST_CASE("metrics: mask gone, nothing etched, feature closed") {
     CHECK(value_of(m, "mask left") == 0);
     CHECK(m.find("undercut") != nullptr);
     CHECK_FALSE(m.find("undercut")->value.has_value());
-    CHECK_FALSE(m.find("selectivity")->value.has_value()); // the loss ended with the mask
+    CHECK_FALSE(m.find("selectivity")->value.has_value()); // the film went on after the mask
     m = measure(c, state_of(c, {{-80, 0, 180}, {-30, 0, 180}, {-30, 0, 0}}));
     CHECK(value_of(m, "depth centre") == Approx(0).margin(1e-9));
     CHECK_FALSE(m.find("selectivity")->value.has_value());

@@ -155,6 +155,45 @@ TEST_CASE("a conformal liner is opened first", "[validation][events]") {
     CHECK(inside == Approx(lined).epsilon(0.05));
 }
 
+// Oracle: a liner five cells thick that is opened at the floor stays on the walls; where its face
+// was laid bare by the etch it is as thick as it is far from the wall and the floor.
+// Source: derived here. Tolerance: 0.6 cell, of thicknesses up to 3 cells (thicker ones need no
+// more than that).
+TEST_CASE("a thick liner is opened and stays on the walls", "[validation][events]") {
+    const std::string stack = "  - {name: film, material: Si, thickness: 60 nm}\n"
+                              "  - {name: bulk, material: W, thickness: semi-infinite}";
+    std::string text = milling_case(stack, "60", "liner: {material: Si3N4, thickness: 10 nm}",
+                                    "until: {reaches: film, at: trench centre}, "
+                                    "no_longer_than: 300 s");
+    const auto set = [&text](const std::string& old, const std::string& now) {
+        const std::size_t at = text.find(old);
+        REQUIRE(at != std::string::npos);
+        text.replace(at, old.size(), now);
+    };
+    set("spacing: 4 nm", "spacing: 2 nm");
+    set("pitch: 80 nm", "pitch: 96 nm");
+    set("cd: 32 nm", "cd: 48 nm");
+    set("sampling:", "    - {name: over, plasma: main, time: 30 % of main}\nsampling:");
+    const Outcome out = run_text(text);
+    REQUIRE(out.result.record.status == "done");
+    const auto& last = out.result.last;
+    const double wall = -24, most = 3 * 2;
+    int faces = 0;
+    double worst = 0;
+    for (std::size_t e = 0; e < last.surface.size(); ++e) {
+        const Vec3 &p = last.surface.centre[e], &n = last.surface.normal[e];
+        if (p.x > 0 || n.x < 0.9 || p.z < 1 || p.z > 25) continue;
+        const double exact = std::min({p.x - wall, p.z, most});
+        worst = std::max(worst, std::fabs(std::min(last.grown.thickness[0][e], most) - exact));
+        ++faces;
+    }
+    CAPTURE(worst, faces);
+    CHECK(faces > 8);
+    CHECK(worst < 0.6 * 2);
+    // The floor is clear, the trench deeper than the film's top.
+    CHECK(metric(out.metrics, "depth centre").value_or(0) > 1);
+}
+
 // Oracle: cost follows the thickness etched, not the number of films. Source: derived here.
 // Tolerance: refreshes and sub-steps within 15 % of those for one film of the same thickness and
 // rate.
