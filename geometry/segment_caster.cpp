@@ -107,6 +107,7 @@ SegmentCaster::SegmentCaster(const Domain& domain, const Surface& surface, doubl
     choose_grid(surface);
     fill_cells(surface);
     find_rectangles();
+    lay_out_cells();
 }
 
 /// Moves the frame to the image in which the ray is at t.
@@ -235,6 +236,17 @@ bool SegmentCaster::concave_at(int element, int end) const {
     return end == 1 ? turn > 0 : turn < 0;
 }
 
+/// Whether nothing in the cell that the ray starts in can be in its way. The margin is for rays
+/// along a straight wall, which round-off takes to either side of it.
+bool SegmentCaster::clears_own_cell(const Vec3& direction, int from) const {
+    constexpr double margin = 1e-6;
+    const auto& own = ends_[from];
+    const double sx = own[2] - own[0], sz = own[3] - own[1];
+    const double up = sx * direction.z - sz * direction.x;
+    const double along = sx * direction.x + sz * direction.z;
+    return up > (skyline_[from] + margin) * std::fabs(along);
+}
+
 /// A ray that starts, to round-off, in a concave joint and points into the other segment ends
 /// there. Which of the two segments its line crosses is then a matter of the last bit.
 bool SegmentCaster::starts_in_joint(const Vec3& origin, const Vec3& direction, int from,
@@ -290,12 +302,14 @@ Hit SegmentCaster::trace(const Vec3& origin, const Vec3& direction, int from_ele
         return hit;
     }
     Best best;
+    bool seen = from_element >= 0 && ray.t == 0 && clears_own_cell(direction, from_element);
     for (;;) {
-        const int content = content_[ray.iz * nx_ + ray.ix];
+        const int content = content_[ray.iz * next_z_ + ray.ix * next_x_];
         const bool right = ray.rightwards(), up = ray.upwards();
         double tx, tz;
         if (content >= 0) {
-            test_runs(ray, &runs_[content], best);
+            if (!seen) test_runs(ray, &runs_[content], best);
+            seen = false;
             tx = (x_min_ + (ray.ix + right) * cell_x_ - ray.ox) * ray.inverse_x;
             tz = (z_min_ + (ray.iz + up) * cell_z_ - ray.oz) * ray.inverse_z;
         } else {

@@ -46,10 +46,14 @@ private:
     struct Best; // nearest crossing so far
 
     void choose_grid(const Surface&);
+    int columns_that_fit(double wanted) const;
     void fill_cells(const Surface&);
+    void bound_skyline(const std::vector<int>& elements);
+    double skyline_over(int element, int other) const;
     Run make_run(int first, int count) const;
     void add_runs(const std::vector<int>& elements, const Surface&);
     void find_rectangles();
+    void lay_out_cells();
     Rectangle grow(int ix, int iz, const std::vector<int>& sums) const;
     std::vector<int> occupancy_sums() const;
     bool occupied(int cell) const { return content_[cell] >= 0; }
@@ -71,6 +75,7 @@ private:
         return (element == joined_[from][0] && !concave_[from][0]) ||
                (element == joined_[from][1] && !concave_[from][1]);
     }
+    bool clears_own_cell(const Vec3& direction, int from) const;
     bool starts_in_joint(const Vec3& origin, const Vec3& direction, int from, Hit&) const;
 
     Domain domain_;
@@ -82,7 +87,11 @@ private:
     std::vector<std::array<double, 4>> ends_;  ///< per element: ax, az, bx, bz
     std::vector<std::array<bool, 2>> concave_; ///< per element: at its start, at its end
     std::vector<std::array<int, 2>> joined_;   ///< element before and after; -1 at a mirror side
-    std::vector<int> content_; ///< per cell: its first run, or if empty -1 - its room
+    /// Per element: a ray that leaves it more steeply than this (tangent of the elevation over the
+    /// segment) passes over everything else in the cells that hold it.
+    std::vector<double> skyline_;
+    int next_x_ = 1, next_z_ = 1; ///< steps in content_; the longer way lies together in memory
+    std::vector<int> content_;    ///< per cell: its first run, or if empty -1 - its room
     std::vector<Room> rooms_;
     std::vector<Run> runs_; ///< copies, cell after cell
 };

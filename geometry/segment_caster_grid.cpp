@@ -5,6 +5,7 @@
 #include <algorithm>
 #include <cmath>
 #include <limits>
+#include <utility>
 
 namespace rille::geometry {
 
@@ -24,7 +25,7 @@ void SegmentCaster::choose_grid(const Surface& surface) {
     // About eight cells a segment: a run of five fits what crosses a cell of a trench.
     const double area = width_ * (high - low + 1e-3 * length);
     const double size = std::max(1.5 * length / n, std::sqrt(area / (8 * n)));
-    nx_ = std::max(1, static_cast<int>(std::lround(width_ / size)));
+    nx_ = columns_that_fit(width_ / size);
     cell_x_ = width_ / nx_;
     // The grid ends exactly at the top: a ray that rises above it is free.
     z_min_ = low - 0.25 * size;
@@ -33,6 +34,29 @@ void SegmentCaster::choose_grid(const Surface& surface) {
     cell_z_ = (high - z_min_) / nz_;
     per_cell_x_ = 1.0 / cell_x_;
     per_cell_z_ = 1.0 / cell_z_;
+}
+
+/// A number of columns near `wanted` that puts walls just inside their cells, next to the gas: a
+/// ray then meets the wall soon after the open space ends.
+int SegmentCaster::columns_that_fit(double wanted) const {
+    int best = std::max(1, static_cast<int>(std::lround(wanted)));
+    double least = std::numeric_limits<double>::infinity();
+    for (int n = std::max(1, static_cast<int>(0.8 * wanted)); n <= 1.3 * wanted; ++n) {
+        double cost = 0;
+        for (const auto& e : ends_) {
+            // Cells from the gas side of the cell to the segment; the normal is (az - bz, bx - ax).
+            const double at = (0.5 * (e[0] + e[2]) - x_min_) / width_ * n,
+                         part = at - std::floor(at);
+            const double gap = e[1] > e[3] ? 1 - part : part;
+            // On the edge itself it would count to the cell before as well.
+            cost += std::fabs(e[3] - e[1]) / n * (gap < 1e-3 ? 1 : gap);
+        }
+        if (cost < least) {
+            least = cost;
+            best = n;
+        }
+    }
+    return best;
 }
 
 void SegmentCaster::fill_cells(const Surface& surface) {
@@ -60,12 +84,40 @@ void SegmentCaster::fill_cells(const Surface& surface) {
                     lists[static_cast<std::size_t>(iz) * nx_ + ix].push_back(e);
             }
     }
+    skyline_.assign(surface.size(), 0.0);
     content_.assign(lists.size(), nothing);
     for (std::size_t c = 0; c < lists.size(); ++c) {
         if (lists[c].empty()) continue;
         content_[c] = static_cast<int>(runs_.size());
         add_runs(lists[c], surface);
+        bound_skyline(lists[c]);
     }
+}
+
+/// Raises the skyline of a cell's elements over what else the cell holds.
+void SegmentCaster::bound_skyline(const std::vector<int>& elements) {
+    constexpr std::size_t crowd = 32; // more are not worth the pairs
+    for (const int e : elements) {
+        if (elements.size() > crowd) skyline_[e] = std::numeric_limits<double>::infinity();
+        for (const int other : elements)
+            if (other != e) skyline_[e] = std::max(skyline_[e], skyline_over(e, other));
+    }
+}
+
+/// Largest tangent of the elevation at which any point of `element` can see `other`; infinite where
+/// it stands over the element itself.
+double SegmentCaster::skyline_over(int element, int other) const {
+    const auto &own = ends_[element], &seen = ends_[other];
+    const double sx = own[2] - own[0], sz = own[3] - own[1], square = sx * sx + sz * sz;
+    double most = 0;
+    for (int end = 0; end < 2; ++end) {
+        const double x = seen[2 * end] - own[0], z = seen[2 * end + 1] - own[1];
+        const double height = sx * z - sz * x, along = sx * x + sz * z;
+        if (height <= 0) continue;
+        const double apart = std::max(-along, along - square); // from the nearer end
+        most = std::max(most, apart > 0 ? height / apart : std::numeric_limits<double>::infinity());
+    }
+    return most;
 }
 
 SegmentCaster::Room SegmentCaster::room(const Rectangle& r) const {
@@ -165,6 +217,18 @@ void SegmentCaster::find_rectangles() {
                 if (content_[iz * nx_ + ix] == nothing) content_[iz * nx_ + ix] = content;
         rooms_.push_back(room(r));
     }
+}
+
+/// The cells of a wall, which rays visit in no order, are brought together.
+void SegmentCaster::lay_out_cells() {
+    next_x_ = nz_ > nx_ ? nz_ : 1;
+    next_z_ = nz_ > nx_ ? 1 : nx_;
+    if (nz_ <= nx_) return;
+    const std::vector<int> rows = std::move(content_);
+    content_.resize(rows.size());
+    for (int iz = 0; iz < nz_; ++iz)
+        for (int ix = 0; ix < nx_; ++ix)
+            content_[iz * next_z_ + ix * next_x_] = rows[iz * nx_ + ix];
 }
 
 } // namespace rille::geometry
