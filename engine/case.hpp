@@ -79,8 +79,10 @@ struct Case {
     std::vector<std::string> tool_log; ///< "key: value" kept with the result, not used
     std::uint64_t seed = 1;
     int rays_per_element = 64;
-    int ions_per_species = 65536;
-    double refresh_move = 0.5; ///< [cells] arrivals are renewed after this movement of the front
+    int ions_per_species = 8192;
+    double refresh_move = 0.5; ///< [cells] arrivals are renewed after this movement of the front,
+    double refresh_change =
+        0.02; ///< or after about this relative change of the rates that they make
     std::vector<InputFile> inputs;
     /// The case as understood, every default filled in; named files by the names of their copies,
     /// so that it can be run again from the folder that a run leaves.

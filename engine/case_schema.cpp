@@ -194,7 +194,7 @@ Rule make_case_rules() {
                        .by_default("64"),
                    integer_rule("ions_per_species", {8, 1073741824.0},
                                 "ions followed for reflections, a multiple of 8")
-                       .by_default("65536"),
+                       .by_default("8192"),
                    quantity_rule("renew_after", D::share, {0, 1, true, false},
                                  "share of a cell that the front moves before arrivals are "
                                  "traced again; smaller is slower")
