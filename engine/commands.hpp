@@ -25,6 +25,8 @@ struct CommonOptions {
 /// Each command returns its exit status and throws InputError, OutputError, NumericsError.
 int run_command(const std::string& case_path, const std::string& folder, bool force,
                 const CommonOptions&, const std::atomic<bool>& stop);
+/// Takes up the run that was stopped in `folder`.
+int resume_command(const std::string& folder, const CommonOptions&, const std::atomic<bool>& stop);
 int check_command(const std::string& case_path, const CommonOptions&);
 /// Measures the last state that a run left in `folder` again, under the case kept there with the
 /// overrides given (`--set measure.cd.top=...`).

@@ -29,20 +29,23 @@ void on_signal(int number) {
     if (!quiet && write(STDERR_FILENO, stopping, sizeof stopping - 1) < 0) quiet = 1;
 }
 
-void add_common(CLI::App& command, engine::CommonOptions& options) {
+void add_overrides(CLI::App& command, engine::CommonOptions& options) {
     command
         .add_option("--set", options.overrides,
                     "Replace a value of the case, for example mask.openings.trench.cd='70 nm'; "
                     "may be given several times")
         ->type_name("KEY=VALUE")
         ->allow_extra_args(false);
+}
+
+void add_common(CLI::App& command, engine::CommonOptions& options) {
     command.add_option("--threads", options.threads, "Threads to use (default: all cores)")
         ->check(CLI::Range(1, 4096).description(""))
         ->type_name("N");
     command.add_flag("--json", options.json, "Print the result as JSON");
 }
 
-void add_run_options(CLI::App& command, engine::CommonOptions& options) {
+void add_seed(CLI::App& command, engine::CommonOptions& options) {
     command
         .add_option("--seed", options.seed, "Seed of everything random, instead of sampling.seed")
         ->check(CLI::Validator(
@@ -52,7 +55,6 @@ void add_run_options(CLI::App& command, engine::CommonOptions& options) {
             },
             ""))
         ->type_name("N");
-    command.add_flag("--quiet", options.quiet, "Print nothing but errors");
 }
 
 /// What is wrong with the words of the command line where a command or an option is unknown; else
@@ -95,7 +97,9 @@ int dispatch(int argc, char** argv) {
     std::string path, folder = "out";
     bool force = false;
     auto* run = app.add_subcommand("run", "Etch a case and write the result into a folder; Ctrl-C "
-                                          "stops it and leaves what it has");
+                                          "stops it, leaves what it has, and resume goes on");
+    auto* resume = app.add_subcommand("resume", "Take up a run that was stopped; the result is the "
+                                                "same as without the stop");
     auto* check = app.add_subcommand("check", "Read a case, show it in full and what it will cost");
     auto* measure = app.add_subcommand("measure", "Measure a finished run again");
     auto* schema = app.add_subcommand("schema", "Print the JSON Schema of a case file");
@@ -104,10 +108,16 @@ int dispatch(int argc, char** argv) {
     run->add_flag("--force", force, "Replace what an earlier run left in the folder");
     run->footer(engine::caution);
     check->add_option("case", path, "Case file (YAML)")->type_name("FILE")->required();
+    resume->add_option("folder", folder, "Folder of the run")->type_name("DIR")->required();
+    resume->footer(engine::caution);
     measure->add_option("folder", folder, "Folder of a run")->type_name("DIR")->required();
     for (CLI::App* command : {run, check, measure})
+        add_overrides(*command, options);
+    for (CLI::App* command : {run, resume, check, measure})
         add_common(*command, options);
-    add_run_options(*run, options);
+    add_seed(*run, options);
+    for (CLI::App* command : {run, resume})
+        command->add_flag("--quiet", options.quiet, "Print nothing but errors");
     try {
         app.parse(argc, argv);
     } catch (const CLI::ParseError& error) {
@@ -125,7 +135,8 @@ int dispatch(int argc, char** argv) {
     quiet = options.quiet;
     std::signal(SIGINT, on_signal);
     std::signal(SIGTERM, on_signal);
-    const int status = engine::run_command(path, folder, force, options, stop);
+    const int status = *resume ? engine::resume_command(folder, options, stop)
+                               : engine::run_command(path, folder, force, options, stop);
     return status == engine::interrupted_status ? 128 + signal_number : status;
 }
 

@@ -171,7 +171,8 @@ double Simulation::neck_limit(const Surface& surface, const fluxes::SurfaceStep&
 const fluxes::SurfaceStep& Simulation::arrivals() {
     if (!present_valid_) {
         const auto previous = std::move(present_);
-        present_ = solve(surface_, films_, previous.response.empty() ? nullptr : &previous);
+        before_solve_ = {previous.neutral, refresh_, health_};
+        present_ = solve(surface_, films_, &previous);
         present_valid_ = true;
     }
     return present_;
