@@ -172,6 +172,12 @@ struct Course {
     RunState state; ///< history, next frame and time spent before are kept here
     Clock::time_point started = Clock::now();
 
+    Course(const Case& c, RunObserver& told, const std::atomic<bool>& stopped)
+        : the_case(c), observer(told), stop(stopped), simulation(c),
+          expected(expect(c, simulation.open_field())) {}
+    Course(const Case& c, RunObserver& told, const std::atomic<bool>& stopped, const RunState& from)
+        : the_case(c), observer(told), stop(stopped), simulation(c, from.simulation),
+          expected(expect(c)), state(from) {}
     double wall_seconds() const {
         return state.wall_seconds + std::chrono::duration<double>(Clock::now() - started).count();
     }
@@ -239,15 +245,13 @@ RunResult follow_recipe(Course& run) {
 } // namespace
 
 RunResult run_case(const Case& the_case, RunObserver& observer, const std::atomic<bool>& stop) {
-    Course run{the_case, observer, stop, Simulation(the_case), {}, {}};
-    run.expected = expect(the_case, run.simulation.open_field());
+    Course run(the_case, observer, stop);
     return follow_recipe(run);
 }
 
 RunResult resume_case(const Case& the_case, const RunState& state, RunObserver& observer,
                       const std::atomic<bool>& stop) {
-    Course run{the_case, observer, stop, Simulation(the_case, state.simulation), {}, state};
-    run.expected = expect(the_case);
+    Course run(the_case, observer, stop, state);
     ++run.state.resumed;
     RunResult result = follow_recipe(run);
     if (state.program != this_program())

@@ -60,7 +60,7 @@ Metrics RunOutput::finish(const RunResult& result) {
     if (series_.empty() || result.last.time_s > series_.back().time_s) add_frame(result.last);
     folder_.write(output_names::history, history_csv(case_, result.history));
     folder_.write(output_names::profile, profile_csv(case_, result.last));
-    const Metrics metrics = measure(case_, result.last);
+    Metrics metrics = measure(case_, result.last);
     folder_.write(output_names::metrics, json_text(metrics_json(case_, metrics)));
     if (result.write_level_set) folder_.write_with(output_names::level_set, result.write_level_set);
     if (result.record.status == "done" || result.record.status == "not cleared")

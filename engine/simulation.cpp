@@ -21,8 +21,9 @@ namespace {
 using geometry::Surface;
 using geometry::Vec3;
 
-constexpr double touching = 1e-6;   // [cells] a front this near to a film has reached it
-constexpr double no_film_nm = 1e-9; // thinner grown film counts as none
+constexpr double lost_ray_share = 1e-5; // a run with more lost rays than this is not trusted
+constexpr double touching = 1e-6;       // [cells] a front this near to a film has reached it
+constexpr double no_film_nm = 1e-9;     // thinner grown film counts as none
 
 /// Adds the wall time of its scope to a counter.
 class Stopwatch {
@@ -71,8 +72,8 @@ double highest(const Surface& surface) {
 } // namespace
 
 void check_lost_rays(const Health& health) {
-    if (health.lost_rays <= lost_rays_allowed || health.lost_rays <= lost_ray_share * health.rays)
-        return;
+    constexpr std::uint64_t few = 100;
+    if (health.lost_rays <= few || health.lost_rays <= lost_ray_share * health.rays) return;
     throw NumericsError(std::to_string(health.lost_rays) + " of " + std::to_string(health.rays) +
                         " rays ended neither on the surface nor in the open");
 }

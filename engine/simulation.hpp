@@ -30,10 +30,8 @@ struct Health {
     int refreshes = 0, sub_steps = 0;
 };
 
-/// A run is not trusted, and stops, once more rays are lost than this number and this share of all.
-constexpr std::uint64_t lost_rays_allowed = 100;
-constexpr double lost_ray_share = 1e-5;
-/// Throws NumericsError beyond both.
+/// A run is not trusted, and stops, once more than 100 rays, and more than 1e-5 of all, are lost:
+/// throws NumericsError.
 void check_lost_rays(const Health&);
 
 /// A void that closed off or a piece that came off, and when it was first seen.

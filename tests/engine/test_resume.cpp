@@ -80,9 +80,15 @@ TEST_CASE("a run that is taken up goes on to the same bits", "[resume]") {
     }
     CHECK(switched); // a state of each step was among them
 
+    Keeper second; // stopped twice
+    resume_case(c, keeper.states[0], second, stop);
+    Keeper rest;
+    const RunResult twice = resume_case(c, second.states.at(1), rest, stop);
+    CHECK(same_bits(whole, twice));
+    CHECK(twice.record.resumed == 2);
+
     RunState other = keeper.states[2];
     other.next_frame_s += 0.05;
-    Keeper rest;
     CHECK_FALSE(same_bits(whole, resume_case(c, other, rest, stop)));
 }
 
