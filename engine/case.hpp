@@ -102,8 +102,10 @@ struct Case {
     std::vector<std::string> tool_log; ///< "key: value" kept with the result, not used
     std::uint64_t seed = 1;
     int rays_per_element = 64;
-    int ions_per_species = 65536;
-    double refresh_move = 0.5; ///< [cells] arrivals are renewed after this movement of the front
+    int ions_per_species = 8192;
+    double refresh_move = 0.5; ///< [cells] arrivals are renewed after this movement of the front,
+    double refresh_change =
+        0.02;                  ///< or after about this relative change of the rates that they make
     std::string resolved_yaml; ///< the case as understood, every default filled in
     std::vector<std::string> warnings;
     /// What resolved_yaml names by the names of its copies, so that it can be run again from the

@@ -279,7 +279,7 @@ Rule make_case_rules() {
                        .by_default("64"),
                    integer_rule("ions_per_species", {8, 1073741824.0},
                                 "ions followed for reflections, a multiple of 8")
-                       .by_default("65536"),
+                       .by_default("8192"),
                    integer_rule("seed", {0, 9007199254740991.0}, "same seed, same bits")
                        .by_default("1")},
                   "how finely arrivals are sampled")

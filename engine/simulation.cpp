@@ -1,6 +1,7 @@
 // SPDX-License-Identifier: Apache-2.0
 #include "engine/simulation.hpp"
 
+#include "engine/arrivals_change.hpp"
 #include "engine/metrics.hpp"
 #include "engine/sources.hpp"
 #include "fluxes/surface_chemistry.hpp"
@@ -23,6 +24,7 @@ using geometry::Vec3;
 
 constexpr double lost_ray_share = 1e-5; // a run with more lost rays than this is not trusted
 constexpr double touching = 1e-6;       // [cells] a front this near to a film has reached it
+constexpr int shortest_pace = 3;        // halvings of the longest step
 constexpr double no_film_nm = 1e-9;     // thinner grown film counts as none
 
 /// Adds the wall time of its scope to a counter.
@@ -200,17 +202,24 @@ Simulation::Trial Simulation::try_advance(const fluxes::SurfaceStep& step, doubl
     return trial;
 }
 
+std::vector<geometry::BetweenCentres> Simulation::feet(const Trial& trial) const {
+    const geometry::NearestElement nearest(case_.domain, trial.surface);
+    std::vector<geometry::BetweenCentres> feet(surface_.size());
+    for (std::size_t e = 0; e < feet.size(); ++e) {
+        const Vec3 foot = surface_.centre[e] - surface_.normal[e] * trial.report.moved[e];
+        feet[e] = geometry::between_centres(case_.domain, trial.surface, nearest(foot), foot);
+    }
+    return feet;
+}
+
 /// Replaces each rate by its mean with the rate at the end of the predicted step (Heun's method),
 /// found at the foot of the element's displacement.
 void Simulation::average_rates(fluxes::SurfaceStep& now, const fluxes::SurfaceStep& later,
-                               const Trial& predicted) const {
-    const geometry::NearestElement nearest(case_.domain, predicted.surface);
+                               const std::vector<geometry::BetweenCentres>& feet) const {
     const std::size_t angles = now.rates.angles.size();
     if (later.rates.angles.size() != angles) return;
     for (std::size_t e = 0; e < surface_.size(); ++e) {
-        const Vec3 foot = surface_.centre[e] - surface_.normal[e] * predicted.report.moved[e];
-        const auto there =
-            geometry::between_centres(case_.domain, predicted.surface, nearest(foot), foot);
+        const geometry::BetweenCentres& there = feet[e];
         if (there.element < 0) continue;
         for (int r = now.rates.first_row[e]; r < now.rates.first_row[e + 1]; ++r) {
             const int other = later.rates.row(there.element, now.rates.material[r]);
@@ -231,27 +240,49 @@ void Simulation::average_rates(fluxes::SurfaceStep& now, const fluxes::SurfaceSt
     }
 }
 
+/// Steps are halved and doubled, so that noise seldom decides about their length.
+bool Simulation::pace(double change, double share) {
+    const int before = pace_;
+    if (change > case_.refresh_change)
+        pace_ = std::min(pace_ + 1, shortest_pace);
+    else if (change < 0.4 * case_.refresh_change && share > 0.9)
+        pace_ = std::max(pace_ - 1, 0);
+    return change > 10 * case_.refresh_change && pace_ > before;
+}
+
 Simulation::Trial Simulation::heun(double time_limit) {
     const fluxes::SurfaceStep& now = arrivals();
-    Trial predicted = try_advance(now, std::min(time_limit, neck_limit_s_), case_.refresh_move);
-    geometry::GrownFilms films = predicted.films;
-    {
-        const Stopwatch watch(timings_.carry);
-        std::vector<geometry::SurfaceField> thickness;
-        std::vector<geometry::SurfaceField*> fields;
-        for (auto& film : films.thickness)
-            thickness.push_back({"film", geometry::Carry::per_area, film});
-        for (auto& field : thickness)
-            fields.push_back(&field);
-        geometry::carry_fields(surface_, predicted.surface, predicted.report.moved,
-                               case_.domain.width_x(), case_.domain.width_y(),
-                               case_.domain.sides == geometry::Sides::periodic, fields);
-        for (std::size_t f = 0; f < films.thickness.size(); ++f)
-            films.thickness[f] = thickness[f].value;
+    const double limit = std::min(time_limit, neck_limit_s_);
+    for (double before = HUGE_VAL;;) {
+        const double longest = std::ldexp(case_.refresh_move, -pace_);
+        Trial predicted = try_advance(now, limit, longest);
+        geometry::GrownFilms films = predicted.films;
+        {
+            const Stopwatch watch(timings_.carry);
+            std::vector<geometry::SurfaceField> thickness;
+            std::vector<geometry::SurfaceField*> fields;
+            for (auto& film : films.thickness)
+                thickness.push_back({"film", geometry::Carry::per_area, film});
+            for (auto& field : thickness)
+                fields.push_back(&field);
+            geometry::carry_fields(surface_, predicted.surface, predicted.report.moved,
+                                   case_.domain.width_x(), case_.domain.width_y(),
+                                   case_.domain.sides == geometry::Sides::periodic, fields);
+            for (std::size_t f = 0; f < films.thickness.size(); ++f)
+                films.thickness[f] = thickness[f].value;
+        }
+        const fluxes::SurfaceStep later = solve(predicted.surface, films, &now);
+        const auto there = feet(predicted);
+        const double change = arrivals_change(case_.domain, surface_, now, later, there);
+        // A jump of the arrivals does not shrink with the step.
+        if (pace(change, predicted.report.largest_move / longest) && change < 0.7 * before) {
+            before = change;
+            ++health_.shortened;
+            continue;
+        }
+        average_rates(present_, later, there);
+        return try_advance(present_, predicted.report.time, 2 * case_.refresh_move);
     }
-    const fluxes::SurfaceStep later = solve(predicted.surface, films, &now);
-    average_rates(present_, later, predicted);
-    return try_advance(present_, predicted.report.time, 2 * case_.refresh_move);
 }
 
 double Simulation::distance_to_goal(const Surface& surface) const {

@@ -5,6 +5,7 @@
 #include "engine/open_field.hpp"
 #include "engine/run_record.hpp"
 #include "fluxes/surface_step.hpp"
+#include "geometry/between_centres.hpp"
 #include "geometry/front.hpp"
 #include "geometry/ray_caster.hpp"
 #include "geometry/topology.hpp"
@@ -28,6 +29,7 @@ struct Health {
     double largest_redistance_shift = 0; ///< [cells]
     double largest_sticking_residual = 0;
     int refreshes = 0, sub_steps = 0;
+    int shortened = 0; ///< steps done again because the arrivals changed too much in them
 };
 
 /// A run is not trusted, and stops, once more than 100 rays, and more than 1e-5 of all, are lost:
@@ -103,8 +105,13 @@ private:
     /// growth on one side alone would close the gap (gaps below one cell count as one cell).
     double neck_limit(const geometry::Surface&, const fluxes::SurfaceStep&,
                       const geometry::RayCaster&) const;
+    /// Where each element's displacement in a trial ends on the surface after it.
+    std::vector<geometry::BetweenCentres> feet(const Trial&) const;
     void average_rates(fluxes::SurfaceStep& now, const fluxes::SurfaceStep& later,
-                       const Trial& predicted) const;
+                       const std::vector<geometry::BetweenCentres>& feet) const;
+    /// Chooses the length of the next step from the change of the arrivals in this one, `share` of
+    /// the longest that it might have been. Whether this one may have been far too long.
+    bool pace(double change, double share);
     void accept(Trial&&, const fluxes::SurfaceStep&);
     void find_isolated();
     double distance_to_goal(const geometry::Surface&) const;
@@ -128,6 +135,7 @@ private:
         Health health;
     } before_solve_;
     double neck_limit_s_ = 0;     ///< of the last surface that was solved
+    int pace_ = 0;                ///< steps are refresh_move / 2^pace_ long at most
     std::size_t plasma_step_ = 0; ///< recipe step whose plasma shapes the arrivals
     OpenField open_field_;
     std::vector<StepOutcome> outcomes_;

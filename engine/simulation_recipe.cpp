@@ -35,6 +35,7 @@ double film_top(const Case& c, const std::string& name) {
 void Simulation::begin_step() {
     if (finished()) return;
     step_start_s_ = time_s_;
+    pace_ = 0;
     start_distance_ = by_profile(recipe().end) ? distance_to_goal(surface_) : 0.0;
 }
 

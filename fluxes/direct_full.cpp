@@ -115,6 +115,10 @@ public:
     DirectIons::Gathered run() {
         const std::size_t count = surface_.size(), angles = cosine_.size();
         std::vector<std::vector<double>> group_flux(groups_.size(), std::vector<double>(count));
+        gathered_.rays_per_batch = per_batch_;
+        gathered_.group_of = group_of_;
+        gathered_.seen.assign(groups_.size(),
+                              std::vector<DirectIons::SeenRay>(count * batches * per_batch_));
         raw_row_.assign(kernels_.size(), std::vector<float>(count * angles));
         raw_batch_.assign(kernels_.size(), std::vector<double>(count * batches));
         over_elements([&](int e) {
@@ -173,7 +177,9 @@ private:
     }
 
     /// One ray per direction; adds up the flux, in units of the open flux.
-    std::vector<Arrival> trace(int group, int e, double& flux) const {
+    std::vector<Arrival> trace(int group, int e, double& flux) {
+        DirectIons::SeenRay* seen_rays =
+            gathered_.seen[group].data() + std::size_t(e) * batches * per_batch_;
         const Vec3 mean = normal_[e];
         const double flat = std::hypot(mean.x, mean.y);
         const double hx = flat > 1e-9 ? mean.x / flat : 1.0, hy = flat > 1e-9 ? mean.y / flat : 0.0;
@@ -181,21 +187,20 @@ private:
         std::vector<Arrival> arrivals;
         arrivals.reserve(std::size_t(per_batch_) * batches);
         for (int b = 0; b < batches; ++b) {
-            const ScrambledPoints points(
-                stream_key(options_.seed, stream, options_.refresh, e, group, b));
             for (int k = 0; k < per_batch_; ++k) {
-                const auto index = static_cast<std::uint32_t>(k);
-                const IonSample ion = groups_[group].distribution.sample(points.four(index));
-                // Spread over the element, so that the flux is its mean and not that of its centre.
-                const auto place = points.pair(index, 2);
-                const Launch at = launch_from_quad(surface_, e, place[0], place[1]);
+                const auto [at, ion] =
+                    sky_ray(surface_, groups_[group].distribution, options_, e, group, b, k);
                 const Vec3 from = -ion.direction;
                 const double facing = from.dot(at.normal);
                 const bool seen = facing > 0
                                       ? caster_.trace(at.point, from, e).kind == Hit::Kind::open
                                       : reached_from_behind(at.point, from);
                 if (!seen) continue;
-                if (facing > 0) flux += share * facing / from.z;
+                if (facing > 0) {
+                    flux += share * facing / from.z;
+                    seen_rays[std::size_t(b) * per_batch_ + k] = {
+                        static_cast<float>(facing / from.z), static_cast<float>(mean.dot(from))};
+                }
                 arrivals.push_back(
                     {from.z, from.x * hx + from.y * hy, share / from.z, ion.energy_ev, b});
             }
@@ -313,6 +318,17 @@ private:
 };
 
 } // namespace
+
+DirectIons::SkyRay sky_ray(const geometry::Surface& surface, const IonDistribution& distribution,
+                           const DirectIons::Options& options, int e, int group, int batch, int k) {
+    const ScrambledPoints points(
+        stream_key(options.seed, stream, options.refresh, e, group, batch));
+    const auto index = static_cast<std::uint32_t>(k);
+    // Spread over the element, so that the flux is its mean and not that of its centre.
+    const auto place = points.pair(index, 2);
+    return {launch_from_quad(surface, e, place[0], place[1]),
+            distribution.sample(points.four(index))};
+}
 
 DirectIons::Gathered gather_full(const geometry::Domain& domain, const geometry::Surface& surface,
                                  const geometry::RayCaster& caster, const IonTables& tables,

@@ -23,7 +23,7 @@ DirectIons::DirectIons(const geometry::Domain& domain, const geometry::Surface& 
 DirectIons::DirectIons(const geometry::Domain& domain, const geometry::Surface& surface,
                        const geometry::RayCaster& caster, std::shared_ptr<const IonTables> tables,
                        const Options& options)
-    : tables_(std::move(tables)),
+    : tables_(std::move(tables)), options_(options),
       gathered_(domain.extruded() ? gather_extruded(domain, surface, *tables_)
                                   : gather_full(domain, surface, caster, *tables_, options)) {}
 
@@ -51,6 +51,12 @@ double DirectIons::tally_batch(int b, int m, int element) const {
 
 double DirectIons::flux(int s, int element) const {
     return gathered_.flux[s][element];
+}
+
+DirectIons::SkyRay DirectIons::ray(const geometry::Surface& surface, int ion, int element,
+                                   int batch, int k) const {
+    return sky_ray(surface, tables_->ions()[ion].distribution, options_, element,
+                   gathered_.group_of[ion], batch, k);
 }
 
 const std::vector<double>& DirectIons::rate_angles() const {

@@ -3,6 +3,7 @@
 
 #include "fluxes/ion_tables.hpp"
 #include "fluxes/ions.hpp"
+#include "fluxes/launch.hpp"
 #include "fluxes/mechanism.hpp"
 #include "geometry/domain.hpp"
 #include "geometry/ray_caster.hpp"
@@ -54,6 +55,28 @@ public:
     /// Normal angles at which rates should be tabulated for this distribution.
     const std::vector<double>& rate_angles() const;
 
+    const IonTables& tables() const { return *tables_; }
+
+    /// full: one ray of the gather; extruded has none.
+    struct SeenRay {
+        float received = 0; ///< (r . n) / r_z if it came from the sky onto the outer side, else 0
+        float cosine = 0;   ///< of the incidence on the averaged normal
+    };
+    struct SkyRay {
+        Launch from;
+        IonSample ion;
+    };
+    /// Rays of each of the 8 batches, and the rays [batch * rays_per_batch() + k] of an element by
+    /// which the flux of an ion species was found: that is the mean of `received` times the open
+    /// flux.
+    int rays_per_batch() const { return gathered_.rays_per_batch; }
+    const SeenRay* seen(int ion, int element) const {
+        return gathered_.seen[gathered_.group_of[ion]].data() +
+               std::size_t(element) * 8 * gathered_.rays_per_batch;
+    }
+    /// Ray k of a batch again. `surface` is the one that the flux was gathered on.
+    SkyRay ray(const geometry::Surface& surface, int ion, int element, int batch, int k) const;
+
     /// What one of the two ways of gathering leaves behind. Vectors over elements.
     struct Gathered {
         std::vector<std::vector<float>> row;    ///< [row][e * angles + k] [nm^-2 s^-1] / factor
@@ -62,10 +85,14 @@ public:
         std::vector<std::vector<double>> flux;  ///< [ion][e]
         std::vector<std::vector<double>> tally; ///< [tally][e]
         std::vector<std::vector<double>> batch; ///< [tally][e * 8 + b]; extruded: empty
+        int rays_per_batch = 0;                 ///< this and what follows: full only
+        std::vector<int> group_of;              ///< ions that arrive alike share rays: [ion]
+        std::vector<std::vector<SeenRay>> seen; ///< [group][(e * 8 + b) * rays_per_batch + k]
     };
 
 private:
     std::shared_ptr<const IonTables> tables_;
+    Options options_;
     Gathered gathered_;
 };
 
@@ -75,6 +102,11 @@ DirectIons::Gathered gather_extruded(const geometry::Domain&, const geometry::Su
 DirectIons::Gathered gather_full(const geometry::Domain&, const geometry::Surface&,
                                  const geometry::RayCaster&, const IonTables&,
                                  const DirectIons::Options&);
+
+/// Ray k of a batch of the full gather from element e: a place on it and an ion that may come
+/// there.
+DirectIons::SkyRay sky_ray(const geometry::Surface&, const IonDistribution&,
+                           const DirectIons::Options&, int e, int group, int batch, int k);
 
 /// Linear interpolation of a row at `angle`.
 double on_row(const std::vector<double>& angles, const float* row, double angle);

@@ -4,6 +4,7 @@
 #include "fluxes/mechanism.hpp"
 #include "geometry/vec.hpp"
 
+#include <array>
 #include <cstdint>
 
 namespace rille::fluxes {
@@ -21,9 +22,10 @@ double energy_kept(const IonReflection&, double ion_amu, double cos_incidence);
 
 /// Direction after reflection: specular about the averaged normal `mean`, with Gaussian scatter
 /// (standard deviation per transverse angle) truncated to directions that leave both the averaged
-/// and the element's own plane. All unit vectors; `key` names the random numbers used.
+/// and the element's own plane. All unit vectors; `first` are the two numbers in [0, 1) used
+/// first, `key` names the random numbers for what is refused.
 geometry::Vec3 reflected_direction(const IonReflection&, const geometry::Vec3& incoming,
                                    const geometry::Vec3& mean, const geometry::Vec3& own,
-                                   std::uint64_t key);
+                                   const std::array<double, 2>& first, std::uint64_t key);
 
 } // namespace rille::fluxes

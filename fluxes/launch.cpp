@@ -9,15 +9,34 @@ namespace rille::fluxes {
 
 using geometry::Vec3;
 
+namespace {
+
+/// The two facets of a quad, twice their areas along their normals, and how much of them counts: a
+/// facet folded over its neighbour looks into the solid, nothing starts there.
+struct Facets {
+    geometry::Facet facet[2];
+    Vec3 cross[2];
+    double size[2];
+
+    Facets(const geometry::Surface& s, int element) {
+        for (int i = 0; i < 2; ++i) {
+            facet[i] = geometry::facet(s.vertices, s.corners[element], i);
+            cross[i] = facet[i].cross();
+            size[i] = cross[i].dot(s.normal[element]) > 0 ? cross[i].length() : 0.0;
+        }
+    }
+};
+
+} // namespace
+
+double launch_area(const geometry::Surface& surface, int element) {
+    const Facets facets(surface, element);
+    return 0.5 * (facets.size[0] + facets.size[1]);
+}
+
 Launch launch_from_quad(const geometry::Surface& s, int element, double u, double v) {
-    const geometry::Facet both[2] = {geometry::facet(s.vertices, s.corners[element], 0),
-                                     geometry::facet(s.vertices, s.corners[element], 1)};
-    const Vec3 cross[2] = {both[0].cross(), both[1].cross()};
-    // A facet folded over its neighbour looks into the solid: nothing starts there.
-    const auto facing = [&](const Vec3& c) {
-        return c.dot(s.normal[element]) > 0 ? c.length() : 0.0;
-    };
-    const double size[2] = {facing(cross[0]), facing(cross[1])};
+    const Facets facets(s, element);
+    const auto& [both, cross, size] = facets;
     const double all = size[0] + size[1];
     if (!(all > 0)) return {s.centre[element], s.normal[element]};
     const double share = size[0] / all;

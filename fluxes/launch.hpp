@@ -15,6 +15,9 @@ struct Launch {
 /// it is the centre.
 Launch launch_from_quad(const geometry::Surface&, int element, double u, double v);
 
+/// Area [nm^2] of the facets over which launch_from_quad spreads.
+double launch_area(const geometry::Surface&, int element);
+
 /// Direction by the cosine law about the unit vector `normal`; density cos / pi per solid angle.
 geometry::Vec3 cosine_direction(const geometry::Vec3& normal, double u, double v);
 

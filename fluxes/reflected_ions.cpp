@@ -2,6 +2,7 @@
 #include "fluxes/reflected_ions.hpp"
 
 #include "fluxes/arc_average.hpp"
+#include "fluxes/first_strikes.hpp"
 #include "fluxes/ion_reflection.hpp"
 #include "fluxes/sampling.hpp"
 #include "geometry/facets.hpp"
@@ -18,7 +19,7 @@ using geometry::Hit;
 
 constexpr std::uint64_t stream = 0x7265666c656374ULL; ///< keeps keys apart from other samplings
 constexpr double degree = 3.14159265358979323846 / 180;
-constexpr int chunk_ions = 1024;
+constexpr int chunk_ions = 512;
 constexpr double roulette_below = 0.05;
 constexpr int longest_path = 100000; ///< hits; counted as lost, not cut silently
 
@@ -29,29 +30,32 @@ struct Deposit {
 };
 struct Chunk {
     int ion = 0, batch = 0, first = 0, count = 0;
+    int of = 0; ///< ions of this species in the batch
     std::vector<Deposit> deposits;
-    double lost = 0;
+    double lost = 0; ///< flux times area
 };
 
 class Tracer {
 public:
     Tracer(const geometry::Domain& domain, const geometry::Surface& surface,
            const geometry::RayCaster& caster, const std::vector<int>& material,
-           const std::vector<IonSource>& ions, const std::vector<Tally>& tallies,
-           const std::vector<IonReflection>& reflection, const ReflectionOptions& options)
-        : domain_(domain), surface_(surface), caster_(caster), material_(material), ions_(ions),
-          tallies_(tallies), reflection_(reflection), options_(options),
-          normal_(averaged_normals(surface, arc_average(domain, surface))),
-          per_batch_(std::max(1, options.ions_per_species / batches)) {
+           const DirectIons& direct, const std::vector<IonReflection>& reflection,
+           const ReflectionOptions& options)
+        : domain_(domain), surface_(surface), caster_(caster), material_(material),
+          ions_(direct.tables().ions()), tallies_(direct.tables().tallies()),
+          reflection_(reflection), options_(options), average_(arc_average(domain, surface)),
+          normal_(averaged_normals(surface, average_)),
+          bound_(reflection), scene_{domain, surface, material, normal_, bound_, direct},
+          strikes_(make_strikes()) {
         for (const IonReflection& law : reflection)
             critical_.push_back(law.probability > 0 && law.critical_deg < 90
                                     ? std::cos(law.critical_deg * degree) + 1e-12
                                     : -1);
-        for (std::size_t s = 0; s < ions.size(); ++s) {
+        for (std::size_t s = 0; s < ions_.size(); ++s) {
             least_energy_.push_back(least_energy(static_cast<int>(s)));
             own_tallies_.emplace_back();
-            for (std::size_t m = 0; m < tallies.size(); ++m)
-                if (tallies[m].ion == static_cast<int>(s))
+            for (std::size_t m = 0; m < tallies_.size(); ++m)
+                if (tallies_[m].ion == static_cast<int>(s))
                     own_tallies_.back().push_back(static_cast<int>(m));
         }
     }
@@ -66,74 +70,115 @@ public:
         result.value.assign(batches, std::vector<double>(tallies_.size() * surface_.size(), 0.0));
         double lost = 0, incident = 0;
         for (const IonSource& ion : ions_)
-            incident += ion.flux;
+            incident += ion.flux * domain_.width_x() * (domain_.extruded() ? 1 : domain_.width_y());
         for (const Chunk& chunk : chunks) {
             for (const Deposit& d : chunk.deposits)
                 result.value[chunk.batch][d.slot] += d.value;
-            lost += chunk.lost * ions_[chunk.ion].flux / (double(per_batch_) * batches);
+            lost += chunk.lost / batches;
         }
+        if (options_.averaged) average(result.value);
         result.lost_share = incident > 0 ? lost / incident : 0.0;
         return result;
     }
 
 private:
+    void average(std::vector<std::vector<double>>& value) const {
+        const std::size_t count = surface_.size(), tallies = tallies_.size();
+        tbb::parallel_for(std::size_t(0), value.size() * tallies, [&](std::size_t i) {
+            double* tally = value[i / tallies].data() + i % tallies * count;
+            const std::vector<double> raw(tally, tally + count);
+            for (std::size_t e = 0; e < count; ++e)
+                tally[e] = average_.of(raw, static_cast<int>(e));
+        });
+    }
+
+    FirstStrikes make_strikes() const {
+        if (domain_.extruded()) return FirstStrikes(std::in_place_type<ExtrudedStrikes>, scene_);
+        return FirstStrikes(std::in_place_type<FullStrikes>, scene_);
+    }
+    double total(int ion, int batch) const {
+        return std::visit([&](const auto& s) { return s.total(ion, batch); }, strikes_);
+    }
+
+    /// Half of the ions are shared out by the flux that each species reflects, half evenly: the
+    /// yields of a rare species can be large.
     std::vector<Chunk> plan() const {
         std::vector<Chunk> chunks;
-        for (int s = 0; s < static_cast<int>(ions_.size()); ++s) {
-            if (!(ions_[s].flux > 0) || options_.ions_per_species <= 0) continue;
-            for (int b = 0; b < batches; ++b)
-                for (int first = 0; first < per_batch_; first += chunk_ions) {
+        const int species = static_cast<int>(ions_.size());
+        const double all = double(std::max(0, options_.ions_per_species)) / batches * species;
+        for (int b = 0; b < batches; ++b) {
+            double sum = 0;
+            int active = 0;
+            for (int s = 0; s < species; ++s) {
+                sum += acts(s) ? total(s, b) : 0;
+                active += acts(s) && total(s, b) > 0;
+            }
+            for (int s = 0; s < species; ++s) {
+                const double own = acts(s) ? total(s, b) : 0;
+                if (!(own > 0) || !(all > 0)) continue;
+                const double share = 0.5 * own / sum + 0.5 / active;
+                const int count = static_cast<int>(std::ceil(all * share));
+                for (int first = 0; first < count; first += chunk_ions) {
                     chunks.emplace_back();
                     Chunk& chunk = chunks.back();
                     chunk.ion = s;
                     chunk.batch = b;
+                    chunk.of = count;
                     chunk.first = first;
-                    chunk.count = std::min(chunk_ions, per_batch_ - first);
+                    chunk.count = std::min(chunk_ions, count - first);
                 }
+            }
         }
         return chunks;
     }
+    bool acts(int ion) const { return !own_tallies_[ion].empty(); }
 
-    /// One ion from the source plane until it stays, leaves, or cannot do anything any more.
+    /// One ion from its first contact until it stays, leaves, or cannot do anything any more.
     void follow(Chunk& chunk, int index) const {
         const std::uint64_t batch_key =
             stream_key(options_.seed, stream, options_.refresh, chunk.ion, chunk.batch);
         const ScrambledPoints points(batch_key);
         const auto i = static_cast<std::uint32_t>(index);
-        // In extruded the place of launch and the polar angle, in full the place, is the first
-        // pair.
-        const bool flat = domain_.extruded();
-        const auto p0 = points.pair(i, 0), p1 = points.pair(i, 1);
-        const auto p2 = flat ? std::array<double, 2>{} : points.pair(i, 2);
-        const Vec3 start(domain_.x_min() + domain_.width_x() * p0[0],
-                         flat ? 0.0 : domain_.y_min() + domain_.width_y() * p0[1],
-                         caster_.z_open());
-        const IonSample ion = ions_[chunk.ion].distribution.sample(
-            flat ? std::array<double, 4>{p0[1], p1[0], p1[1], 0.5}
-                 : std::array<double, 4>{p1[0], p1[1], p2[0], p2[1]});
+        const Strike strike = std::visit(
+            [&](const auto& s) { return s.draw(chunk.ion, chunk.batch, points, i, chunk.of); },
+            strikes_);
+        if (strike.element < 0) return;
         const std::uint64_t key = stream_key(batch_key, index, 1);
-        double weight = 1, energy = ion.energy_ev;
-        Hit hit = caster_.trace(start, ion.direction, -1);
+        double weight = 1, energy = strike.ion.energy_ev;
+        Hit hit{Hit::Kind::surface, strike.element, 0, strike.point, strike.ion.direction};
+        Vec3 own = strike.normal;
         for (int hits = 0;; ++hits) {
-            if (hit.kind == Hit::Kind::lost || hits == longest_path) chunk.lost += weight;
+            if (hit.kind == Hit::Kind::lost || hits == longest_path)
+                chunk.lost += weight * strike.carried;
             if (hit.kind != Hit::Kind::surface || hits == longest_path) return;
             const Vec3 mean = normal_[hit.element];
             const double cosine = std::clamp(-hit.direction.dot(mean), 0.0, 1.0);
-            if (hits > 0) deposit(chunk, hit.element, weight, energy, cosine);
+            if (hits > 0) {
+                deposit(chunk, hit.element, weight * strike.carried, energy, cosine);
+                own = geometry::normal_at(surface_, hit.element, hit.point);
+            }
             if (!(cosine < critical_[material_[hit.element]])) return; // stays
             const IonReflection& law = reflection_[material_[hit.element]];
             weight *= reflection_probability(law, cosine);
             energy *= energy_kept(law, ions_[chunk.ion].mass_amu, cosine);
             if (!(weight > 0) || energy <= least_energy_[chunk.ion]) return;
-            if (weight < roulette_below) {
-                if (unit_interval(stream_key(key, hits, 7)) * roulette_below >= weight) return;
-                weight = roulette_below;
+            if (weight * strike.carried < roulette_below * equal_share(chunk)) {
+                const double kept = roulette_below * equal_share(chunk) / strike.carried;
+                if (unit_interval(stream_key(key, hits, 7)) * kept >= weight) return;
+                weight = kept;
             }
-            const Vec3 out = reflected_direction(
-                law, hit.direction, mean, geometry::normal_at(surface_, hit.element, hit.point),
-                stream_key(key, hits, 11));
+            const std::uint64_t scatter = stream_key(key, hits, 11);
+            const std::array<double, 2> first =
+                hits == 0 ? strike.scatter
+                          : std::array<double, 2>{unit_interval(stream_key(scatter, 0)),
+                                                  unit_interval(stream_key(scatter, 1))};
+            const Vec3 out = reflected_direction(law, hit.direction, mean, own, first, scatter);
             hit = caster_.trace(hit.point, out, hit.element);
         }
+    }
+    /// Reflected flux times area that an ion stands for at most, if the guide is right.
+    double equal_share(const Chunk& chunk) const {
+        return total(chunk.ion, chunk.batch) / chunk.of;
     }
 
     /// Energy only falls, and no yield grows when it does: an ion at or below the energy returned
@@ -154,10 +199,8 @@ private:
         return low;
     }
 
-    void deposit(Chunk& chunk, int element, double weight, double energy, double cosine) const {
-        const double base = domain_.width_x() * (domain_.extruded() ? 1.0 : domain_.width_y());
-        const double flux =
-            weight * ions_[chunk.ion].flux * base / (per_batch_ * surface_.area[element]);
+    void deposit(Chunk& chunk, int element, double carried, double energy, double cosine) const {
+        const double flux = carried / surface_.area[element];
         for (const int m : own_tallies_[chunk.ion]) {
             const double value = flux * tallies_[m].yield(energy, cosine);
             if (value != 0) chunk.deposits.push_back({m * surface_.size() + element, value});
@@ -172,21 +215,24 @@ private:
     const std::vector<Tally>& tallies_;
     const std::vector<IonReflection>& reflection_;
     const ReflectionOptions& options_;
+    ArcAverage average_;
     std::vector<Vec3> normal_;
+    ReflectionBound bound_;
+    StrikeScene scene_;
+    FirstStrikes strikes_;
     std::vector<double> critical_;     ///< per material: no reflection at cosines from here on
     std::vector<double> least_energy_; ///< per ion species [eV]
     std::vector<std::vector<int>> own_tallies_; ///< per ion species
-    int per_batch_;
 };
 
 } // namespace
 
 ReflectedIons trace_reflected(const geometry::Domain& domain, const geometry::Surface& surface,
                               const geometry::RayCaster& caster, const std::vector<int>& material,
-                              const std::vector<IonSource>& ions, const std::vector<Tally>& tallies,
+                              const DirectIons& direct,
                               const std::vector<IonReflection>& reflection,
                               const ReflectionOptions& options) {
-    return Tracer(domain, surface, caster, material, ions, tallies, reflection, options).run();
+    return Tracer(domain, surface, caster, material, direct, reflection, options).run();
 }
 
 } // namespace rille::fluxes

@@ -1,8 +1,8 @@
 // SPDX-License-Identifier: Apache-2.0
 #pragma once
 
+#include "fluxes/direct_ions.hpp"
 #include "fluxes/exchange.hpp"
-#include "fluxes/ions.hpp"
 #include "fluxes/mechanism.hpp"
 #include "geometry/domain.hpp"
 #include "geometry/ray_caster.hpp"
@@ -21,17 +21,23 @@ struct ReflectedIons {
 };
 
 struct ReflectionOptions {
-    int ions_per_species = 65536; ///< launched through the source plane, a multiple of `batches`
+    /// Followed from their first contact on; shared out among the species by the flux that each
+    /// reflects.
+    int ions_per_species = 8192;
     std::uint64_t seed = 1;
     std::uint64_t refresh = 0;
+    /// Tallies averaged over the surroundings like the direct ones: over about five cells of
+    /// surface, never across a corner, sums kept.
+    bool averaged = true;
 };
 
-/// Forward tracing in fixed chunks, each with its own buffer, summed in order. `reflection[m]` is
-/// the law of material m; material[e] the material at each element. Direct arrivals are not
-/// tallied.
+/// Ions are drawn where they first strike, in proportion to the direct flux times the probability
+/// of reflection, and followed from there: fixed chunks, each with its own buffer, summed in order.
+/// `reflection[m]` is the law of material m; material[e] the material at each element. Ions and
+/// tallies are those of `direct`, gathered on the same surface. Direct arrivals are not tallied.
 ReflectedIons trace_reflected(const geometry::Domain&, const geometry::Surface&,
                               const geometry::RayCaster&, const std::vector<int>& material,
-                              const std::vector<IonSource>&, const std::vector<Tally>&,
+                              const DirectIons& direct,
                               const std::vector<IonReflection>& reflection,
                               const ReflectionOptions&);
 

@@ -84,8 +84,7 @@ IonArrivals gather_ions(const Setting& s, const std::vector<IonReflection>& refl
         std::vector<int> material(n);
         for (std::size_t e = 0; e < n; ++e)
             material[e] = s.outermost(int(e));
-        bounced = trace_reflected(s.domain, s.surface, s.caster, material, s.sources.ions,
-                                  s.mechanism.tallies, reflection,
+        bounced = trace_reflected(s.domain, s.surface, s.caster, material, *ions.direct, reflection,
                                   {sampling.ions_per_species, sampling.seed, sampling.refresh});
     }
     for_elements(n, [&](int e) {

@@ -26,7 +26,7 @@ struct Sources {
 };
 struct Sampling {
     int rays_per_element = 64;
-    int ions_per_species = 65536;
+    int ions_per_species = 8192;
     int ion_directions = 64;
     std::uint64_t seed = 1;
     std::uint64_t refresh = 0;

@@ -1,7 +1,7 @@
 // SPDX-License-Identifier: Apache-2.0
 #include "fluxes/direct_ions.hpp"
 #include "tests/support/csv_table.hpp"
-#include "tests/support/shapes.hpp"
+#include "tests/support/one_ion.hpp"
 
 #include <catch2/catch.hpp>
 #include <tbb/global_control.h>
@@ -11,14 +11,13 @@
 using namespace rille;
 using namespace rille::fluxes;
 using geometry::Domain;
-using geometry::RayCaster;
 using geometry::Surface;
+using tests::degree;
+using tests::OneIon;
+using tests::per_ion;
+using tests::pi;
 
 namespace {
-
-constexpr double pi = 3.14159265358979323846;
-constexpr double degree = pi / 180;
-const YieldFunction per_ion{ConstantLaw{1.0}, FlatAngle{}, 1.0};
 
 Domain square(double width) {
     Domain d;
@@ -39,26 +38,11 @@ Surface hole(const Domain& d, double depth, int around) {
     return tests::revolved_hole(d, profile, around);
 }
 
-struct Estimate {
-    double value, error;
-};
-/// Average over elements by batch.
+/// Average of tally 0 over elements, by batch.
 template <class Where>
-Estimate average(const DirectIons& ions, const Surface& s, Where where) {
-    double values[8], mean = 0, square = 0;
-    for (int b = 0; b < 8; ++b) {
-        double sum = 0, area = 0;
-        for (std::size_t e = 0; e < s.size(); ++e)
-            if (where(s.centre[e])) {
-                sum += ions.tally_batch(b, 0, int(e)) * s.area[e];
-                area += s.area[e];
-            }
-        values[b] = sum / area;
-        mean += values[b] / 8;
-    }
-    for (double v : values)
-        square += (v - mean) * (v - mean);
-    return {mean, std::sqrt(square / 56)};
+tests::Mean average(const DirectIons& ions, const Surface& s, Where where) {
+    return tests::batch_average(
+        s, [&](int b, int e) { return ions.tally_batch(b, 0, e); }, where);
 }
 
 } // namespace
@@ -74,11 +58,11 @@ TEST_CASE("direct ions, full: floor of a round hole", "[direct][full]") {
                            int directions) {
         const double depth = 20 * aspect;
         const Surface s = hole(d, depth, 48);
-        const RayCaster caster(d, s, 5);
         DirectIons::Options options;
         options.directions = directions;
-        const DirectIons ions(d, s, caster, {{"X+", 40, 1.0, law}}, {{0, per_ion}}, options);
-        const Estimate floor = average(ions, s, [&](const Vec3& c) { return c.z < -depth + 1e-6; });
+        const OneIon one(d, s, law, 1, per_ion, options);
+        const tests::Mean floor =
+            average(one.ions, s, [&](const Vec3& c) { return c.z < -depth + 1e-6; });
         CAPTURE(aspect, floor.value, floor.error, expected);
         CHECK(floor.error < 0.005 * expected);
         CHECK(std::fabs(floor.value - expected) < 4 * floor.error + 0.003 * expected);
@@ -100,12 +84,8 @@ TEST_CASE("direct ions, full: open plane, turned normals and batches", "[direct]
     // Tolerance: 1e-12 for the beam at table angles (float 1e-6), 1e-12 for batches.
     const Domain d = square(30);
     const Surface s = tests::revolved_hole(d, {{10, 0}, {0, 0}}, 24);
-    const RayCaster caster(d, s, 5);
-    DirectIons::Options options;
-    options.directions = 64;
-    const DirectIons beam(d, s, caster,
-                          {{"X+", 40, 2.5, IonDistribution::beam(100, Vec3(0, 0, -1))}},
-                          {{0, per_ion}}, options);
+    const OneIon vertical(d, s, IonDistribution::beam(100, Vec3(0, 0, -1)), 2.5);
+    const DirectIons& beam = vertical.ions;
     const auto angles = beam.rate_angles();
     CHECK(angles.size() <= 64);
     CHECK(angles.front() == 0);
@@ -116,8 +96,8 @@ TEST_CASE("direct ions, full: open plane, turned normals and batches", "[direct]
         for (double a : angles)
             CHECK(std::fabs(beam.tally_at(0, int(e), a) - 2.5 * std::max(0.0, std::cos(a))) < 1e-5);
     }
-    const DirectIons spread(d, s, caster, {{"X+", 40, 1, IonDistribution::gaussian(100, 0.1)}},
-                            {{0, per_ion}}, options);
+    const OneIon gaussian(d, s, IonDistribution::gaussian(100, 0.1));
+    const DirectIons& spread = gaussian.ions;
     double mean = 0;
     for (int b = 0; b < 8; ++b)
         mean += spread.tally_batch(b, 0, 5) / 8;
@@ -129,15 +109,13 @@ TEST_CASE("direct ions, full: same bits for any number of threads", "[direct][fu
     // Oracle: one thread.  Source: disjoint outputs.  Tolerance: none.
     const Domain d = square(30);
     const Surface s = hole(d, 40, 24);
-    const RayCaster caster(d, s, 5);
     const auto run = [&](int threads, std::uint64_t refresh) {
         tbb::global_control limit(tbb::global_control::max_allowed_parallelism, threads);
         DirectIons::Options options;
         options.directions = 32;
         options.refresh = refresh;
-        const DirectIons ions(d, s, caster,
-                              {{"X+", 40, 1.0, IonDistribution::thermal_fall(100, 0.3, 0.3)}},
-                              {{0, per_ion}}, options);
+        const OneIon one(d, s, IonDistribution::thermal_fall(100, 0.3, 0.3), 1, per_ion, options);
+        const DirectIons& ions = one.ions;
         std::vector<double> all;
         for (std::size_t e = 0; e < s.size(); ++e) {
             all.push_back(ions.flux(0, int(e)));

@@ -1,7 +1,7 @@
 // SPDX-License-Identifier: Apache-2.0
 #include "fluxes/direct_ions.hpp"
 #include "tests/support/csv_table.hpp"
-#include "tests/support/shapes.hpp"
+#include "tests/support/one_ion.hpp"
 
 #include <catch2/catch.hpp>
 
@@ -11,14 +11,12 @@
 using namespace rille;
 using namespace rille::fluxes;
 using geometry::Domain;
-using geometry::RayCaster;
 using geometry::Sides;
 using geometry::Surface;
+using tests::degree;
+using tests::OneIon;
 
 namespace {
-
-constexpr double pi = 3.14159265358979323846;
-constexpr double degree = pi / 180;
 
 Domain period(double spacing, int cells, Sides sides) {
     Domain d;
@@ -33,14 +31,6 @@ IonDistribution cosine_ions() {
     return IonDistribution::thermal_fall(0, 1, 1);
 }
 
-struct Direct {
-    RayCaster caster;
-    DirectIons ions;
-    Direct(const Domain& d, const Surface& s, const IonDistribution& law,
-           const std::vector<Tally>& tallies = {}, double flux = 1)
-        : caster(d, s, 10), ions(d, s, caster, {{"X+", 40, flux, law}}, tallies, {}) {}
-};
-
 double collected(const DirectIons& ions, const Surface& s) {
     double sum = 0;
     for (std::size_t e = 0; e < s.size(); ++e)
@@ -50,14 +40,9 @@ double collected(const DirectIons& ions, const Surface& s) {
 
 /// Mean flux over elements whose centres satisfy a condition.
 template <class Where>
-double mean_flux(const Direct& d, const Surface& s, Where where) {
-    double sum = 0, area = 0;
-    for (std::size_t e = 0; e < s.size(); ++e)
-        if (where(s.centre[e])) {
-            sum += d.ions.flux(0, int(e)) * s.area[e];
-            area += s.area[e];
-        }
-    return sum / area;
+double mean_flux(const OneIon& d, const Surface& s, Where where) {
+    return tests::area_average(
+        s, [&](int e) { return d.ions.flux(0, e); }, where);
 }
 
 /// Overhanging mask over a pocket with a hook, beside a leaning wall.
@@ -76,13 +61,13 @@ TEST_CASE("direct ions, extruded: nothing is lost", "[direct]") {
     const Domain d = period(1, 80, GENERATE(Sides::mirror, Sides::periodic));
     const Surface s = tests::polyline(d, crooked_profile(), 1.0);
     const double tilt = GENERATE(0.0, 7.3, -31.0, 74.0);
-    const Direct beam(
+    const OneIon beam(
         d, s,
         IonDistribution::beam(100, Vec3(std::sin(tilt * degree), 0, -std::cos(tilt * degree))));
     CHECK(std::fabs(collected(beam.ions, s) / 80 - 1) < 1e-9);
-    const Direct narrow(d, s, IonDistribution::thermal_fall(100, 0.2, 0.2));
+    const OneIon narrow(d, s, IonDistribution::thermal_fall(100, 0.2, 0.2));
     CHECK(std::fabs(collected(narrow.ions, s) / 80 - 1) < 1e-9);
-    const Direct broad(d, s, cosine_ions());
+    const OneIon broad(d, s, cosine_ions());
     CHECK(std::fabs(collected(broad.ions, s) / 80 - 1) < 1e-9);
 }
 
@@ -94,7 +79,7 @@ TEST_CASE("direct ions, extruded: cosine law in a trench", "[direct]") {
         const double width = 40, depth = row["AR"] * width;
         const Domain d = period(1, 80, Sides::mirror);
         const Surface s = tests::trench(d, width, depth, 1.0);
-        const Direct direct(d, s, cosine_ions());
+        const OneIon direct(d, s, cosine_ions());
         CAPTURE(row["AR"]);
         const auto floor = [&](double x) {
             return mean_flux(direct, s, [&](const Vec3& p) {
@@ -132,11 +117,11 @@ TEST_CASE("direct ions, extruded: Gaussian ions in a trench", "[direct]") {
         const Domain d = period(2, 40, Sides::mirror);
         const Surface s = tests::trench(d, width, depth, 2.0);
         const auto average = [&](double sigma) {
-            const Direct direct(d, s, IonDistribution::gaussian(100, sigma * degree));
+            const OneIon direct(d, s, IonDistribution::gaussian(100, sigma * degree));
             return mean_flux(direct, s, [&](const Vec3& p) { return p.z < -depth + 1e-6; });
         };
         CAPTURE(row["AR"], row["sigma_deg"]);
-        const Direct direct(d, s, IonDistribution::gaussian(100, row["sigma_deg"] * degree));
+        const OneIon direct(d, s, IonDistribution::gaussian(100, row["sigma_deg"] * degree));
         const double centre = mean_flux(
             direct, s, [&](const Vec3& p) { return p.z < -depth + 1e-6 && std::fabs(p.x) < 1.1; });
         CHECK(centre == Approx(row["tr_centre"]).epsilon(0.005));
@@ -166,7 +151,7 @@ TEST_CASE("direct ions, extruded: under an overhanging mask", "[direct]") {
                                        {0.5 * unit, 0, 0},
                                        {80, 0, 0}},
                                       1.0);
-    const Direct direct(d, s, cosine_ions());
+    const OneIon direct(d, s, cosine_ions());
     const auto floor = [&](double x) {
         return mean_flux(direct, s, [&](const Vec3& p) {
             return p.z < -2.49 * unit && std::fabs(p.x - x * unit) < 1.1;

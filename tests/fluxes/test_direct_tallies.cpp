@@ -2,7 +2,7 @@
 #include "fluxes/direct_ions.hpp"
 #include "fluxes/open_sky.hpp"
 #include "tests/support/brute_caster.hpp"
-#include "tests/support/shapes.hpp"
+#include "tests/support/one_ion.hpp"
 
 #include <catch2/catch.hpp>
 #include <tbb/global_control.h>
@@ -13,16 +13,14 @@
 using namespace rille;
 using namespace rille::fluxes;
 using geometry::Domain;
-using geometry::RayCaster;
 using geometry::Sides;
 using geometry::Surface;
+using tests::degree;
+using tests::OneIon;
+using tests::per_ion;
+using tests::pi;
 
 namespace {
-
-constexpr double pi = 3.14159265358979323846;
-constexpr double degree = pi / 180;
-
-const YieldFunction per_ion{ConstantLaw{1.0}, FlatAngle{}, 1.0};
 
 double integral(const std::function<double(double)>& f, double from, double to, int n) {
     double sum = 0;
@@ -41,19 +39,6 @@ double lit(double psi, double low, double high, double sigma) {
                    (sigma * std::sqrt(2 * pi));
         },
         std::max(from, -12 * sigma), to, 4000);
-}
-
-/// Trench whose walls lean outwards by `tilt` (opening wider than the floor).
-Surface leaning(const Domain& d, double floor, double depth, double tilt, double length) {
-    const double side = 0.5 * d.width_x(), top = 0.5 * floor + depth * std::tan(tilt);
-    return tests::polyline(d,
-                           {{-side, 0, 0},
-                            {-top, 0, 0},
-                            {-0.5 * floor, 0, -depth},
-                            {0.5 * floor, 0, -depth},
-                            {top, 0, 0},
-                            {side, 0, 0}},
-                           length);
 }
 
 } // namespace
@@ -117,11 +102,9 @@ TEST_CASE("direct ions, extruded: walls a few beam spreads from vertical", "[dir
     for (double tilt : {0.2, 1.15, 3.0}) {
         Domain d;
         d.cells_x = 160;
-        const Surface s = leaning(d, floor, depth, tilt * degree, 1.0);
-        const RayCaster caster(d, s, 5);
-        const DirectIons ions(d, s, caster,
-                              {{"X+", 40, 2.0, IonDistribution::gaussian(100, sigma)}},
-                              {{0, per_ion}}, {});
+        const Surface s = tests::leaning_trench(d, floor, depth, tilt * degree, 1.0);
+        const OneIon one(d, s, IonDistribution::gaussian(100, sigma), 2.0);
+        const DirectIons& ions = one.ions;
         double sum = 0, exact_sum = 0;
         for (std::size_t e = 0; e < s.size(); ++e) {
             const Vec3 c = s.centre[e];
@@ -156,11 +139,9 @@ TEST_CASE("direct ions, extruded: first-step rate of a vertical wall", "[direct]
         d.spacing = 2;
         d.cells_x = 60;
         const Surface s = tests::trench(d, width, depth, 2.0);
-        const RayCaster caster(d, s, 5);
         const double sigma = spread * degree;
-        const DirectIons ions(d, s, caster,
-                              {{"X+", 40, 1.0, IonDistribution::gaussian(100, sigma)}},
-                              {{0, per_ion}}, {});
+        const OneIon one(d, s, IonDistribution::gaussian(100, sigma));
+        const DirectIons& ions = one.ions;
         std::vector<double> bin(40, 0.0), area(40, 0.0), exact(40, 0.0);
         for (std::size_t e = 0; e < s.size(); ++e) {
             const Vec3 c = s.centre[e];
@@ -188,13 +169,13 @@ TEST_CASE("direct ions: tallies of a yield over an open plane", "[direct]") {
     Domain d;
     d.cells_x = 20;
     const Surface s = tests::polyline(d, {{-10, 0, 0}, {10, 0, 0}}, 1.0);
-    const RayCaster caster(d, s, 5);
     const auto ions =
         GENERATE(as<int>(), 0, 1) == 0
             ? IonDistribution::thermal_fall(60, 2.0, 2.0)
             : IonDistribution::histogram({40, 60, 120}, {0, 5, 15, 30}, {{2, 3, 1}, {4, 1, 0.5}});
     const YieldFunction yield{SquareRootLaw{0.02, 45}, YamamuraAngle{2.2, 62}, 1.0};
-    const DirectIons direct(d, s, caster, {{"X+", 40, 3.0, ions}}, {{0, yield}}, {});
+    const OneIon one(d, s, ions, 3.0, yield);
+    const DirectIons& direct = one.ions;
     for (double psi : {0.0, 20.0, 45.0, 63.0, 75.0}) {
         double sum = 0;
         const int count = 200000;
@@ -221,12 +202,10 @@ TEST_CASE("direct ions: rates linear between the rate angles", "[direct]") {
     Domain d;
     d.cells_x = 20;
     const Surface s = tests::polyline(d, {{-10, 0, 0}, {10, 0, 0}}, 1.0);
-    const RayCaster caster(d, s, 5);
     for (double spread : {0.5, 1.0, 4.0}) {
         const double sigma = std::tan(spread * degree);
-        const DirectIons ions(d, s, caster,
-                              {{"X+", 40, 1.0, IonDistribution::gaussian(100, sigma)}},
-                              {{0, per_ion}}, {});
+        const OneIon one(d, s, IonDistribution::gaussian(100, sigma));
+        const DirectIons& ions = one.ions;
         const auto angles = ions.rate_angles();
         CHECK(angles.size() <= 240);
         CHECK(angles.front() == -pi);
@@ -268,9 +247,8 @@ TEST_CASE("direct ions: conservative rates on a rough wall", "[direct]") {
     };
     const Surface smooth = wall(0), rough = wall(0.0018);
     const auto law = IonDistribution::gaussian(100, 1 * degree);
-    const RayCaster a(d, smooth, 5), b(d, rough, 5);
-    const DirectIons flat(d, smooth, a, {{"X+", 40, 1, law}}, {{0, per_ion}}, {});
-    const DirectIons bumpy(d, rough, b, {{"X+", 40, 1, law}}, {{0, per_ion}}, {});
+    const OneIon on_smooth(d, smooth, law), on_rough(d, rough, law);
+    const DirectIons &flat = on_smooth.ions, &bumpy = on_rough.ions;
     REQUIRE(smooth.size() == rough.size());
     double total = 0, expected = 0, worst = 0, noise = 0;
     for (std::size_t e = 0; e < smooth.size(); ++e) {
@@ -310,12 +288,11 @@ TEST_CASE("direct ions: same bits for any number of threads", "[direct]") {
     Domain d;
     d.cells_x = 80;
     const Surface s = tests::trench(d, 40, 120, 1.0);
-    const RayCaster caster(d, s, 5);
     const auto run = [&](int threads) {
         tbb::global_control limit(tbb::global_control::max_allowed_parallelism, threads);
-        const DirectIons ions(d, s, caster,
-                              {{"X+", 40, 1.0, IonDistribution::thermal_fall(100, 0.3, 0.3)}},
-                              {{0, {SquareRootLaw{0.1, 20}, YamamuraAngle{}, 1}}}, {});
+        const OneIon one(d, s, IonDistribution::thermal_fall(100, 0.3, 0.3), 1,
+                         {SquareRootLaw{0.1, 20}, YamamuraAngle{}, 1});
+        const DirectIons& ions = one.ions;
         std::vector<double> all;
         for (std::size_t e = 0; e < s.size(); ++e) {
             all.push_back(ions.flux(0, int(e)));

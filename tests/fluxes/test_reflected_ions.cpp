@@ -1,7 +1,8 @@
 // SPDX-License-Identifier: Apache-2.0
 #include "fluxes/ion_reflection.hpp"
 #include "fluxes/reflected_ions.hpp"
-#include "tests/support/shapes.hpp"
+#include "fluxes/sampling.hpp"
+#include "tests/support/one_ion.hpp"
 
 #include <catch2/catch.hpp>
 #include <tbb/global_control.h>
@@ -12,15 +13,13 @@
 using namespace rille;
 using namespace rille::fluxes;
 using geometry::Domain;
-using geometry::RayCaster;
 using geometry::Surface;
+using tests::degree;
+using tests::Mean;
+using tests::OneIon;
+using tests::pi;
 
 namespace {
-
-constexpr double pi = 3.14159265358979323846;
-constexpr double degree = pi / 180;
-
-const YieldFunction per_ion{ConstantLaw{1.0}, FlatAngle{}, 1.0};
 
 /// Loss-free mirror with a constant probability.
 IonReflection mirror_law(double probability) {
@@ -33,28 +32,10 @@ IonReflection mirror_law(double probability) {
     return law;
 }
 
-/// Mean over batches of an average over elements, and its standard error.
-struct Estimate {
-    double value, error;
-};
 template <class Where>
-Estimate average(const ReflectedIons& r, const Surface& s, Where where) {
-    std::vector<double> batch;
-    for (const auto& value : r.value) {
-        double sum = 0, area = 0;
-        for (std::size_t e = 0; e < s.size(); ++e)
-            if (where(s.centre[e])) {
-                sum += value[e] * s.area[e];
-                area += s.area[e];
-            }
-        batch.push_back(sum / area);
-    }
-    double mean = 0, square = 0;
-    for (double b : batch)
-        mean += b / batch.size();
-    for (double b : batch)
-        square += (b - mean) * (b - mean);
-    return {mean, std::sqrt(square / (batch.size() * (batch.size() - 1)))};
+Mean average(const ReflectedIons& r, const Surface& s, Where where) {
+    return tests::batch_average(
+        s, [&](int b, int e) { return r.value[b][e]; }, where);
 }
 
 } // namespace
@@ -102,13 +83,14 @@ TEST_CASE("reflection probability and direction", "[reflected]") {
     CHECK(reflection_probability(law, 0) == Approx(1));
     const Vec3 normal(0, 0, 1), down(std::sin(80 * degree), 0, -std::cos(80 * degree));
     law.scatter_deg = 0;
-    CHECK((reflected_direction(law, down, normal, normal, 1) - Vec3(down.x, 0, -down.z)).length() <
-          1e-12);
+    CHECK((reflected_direction(law, down, normal, normal, {0.3, 0.6}, 1) - Vec3(down.x, 0, -down.z))
+              .length() < 1e-12);
     law.scatter_deg = 10;
     const int count = 20000;
     double sideways = 0;
+    const ScrambledPoints points(7);
     for (int i = 0; i < count; ++i) {
-        const Vec3 d = reflected_direction(law, down, normal, normal, i);
+        const Vec3 d = reflected_direction(law, down, normal, normal, points.pair(i, 0), i);
         REQUIRE(d.z > 0);
         REQUIRE(std::fabs(d.length() - 1) < 1e-12);
         sideways += d.y;
@@ -128,25 +110,16 @@ TEST_CASE("microtrench band under tilted walls", "[reflected]") {
     Domain d;
     d.spacing = 1;
     d.cells_x = static_cast<int>(std::ceil(floor + 2 * inset)) + 40;
-    const double top = 0.5 * floor + inset, side = 0.5 * d.width_x();
-    const Surface s = tests::polyline(d,
-                                      {{-side, 0, 0},
-                                       {-top, 0, 0},
-                                       {-0.5 * floor, 0, -height},
-                                       {0.5 * floor, 0, -height},
-                                       {top, 0, 0},
-                                       {side, 0, 0}},
-                                      1.0);
-    const RayCaster caster(d, s, 5);
+    const Surface s = tests::leaning_trench(d, floor, height, alpha * degree, 1.0);
+    const OneIon one(d, s, IonDistribution::beam(100, Vec3(0, 0, -1)));
     ReflectionOptions options;
-    options.ions_per_species = 131072;
+    options.ions_per_species = 16384;
+    options.averaged = false; // the edge of the band is looked at
     const std::vector<int> material(s.size(), 0);
     // Only walls reflect: the floor is hit at normal incidence.
     IonReflection law = mirror_law(p);
     law.critical_deg = 60;
-    const auto r = trace_reflected(d, s, caster, material,
-                                   {{"X+", 40, 1.0, IonDistribution::beam(100, Vec3(0, 0, -1))}},
-                                   {{0, per_ion}}, {law}, options);
+    const auto r = trace_reflected(d, s, one.caster, material, one.ions, {law}, options);
     CHECK(r.lost_share < 1e-5);
     const double width = height * std::tan(alpha * degree) / std::cos(2 * alpha * degree);
     const double expected = p * std::cos(2 * alpha * degree);
@@ -154,17 +127,17 @@ TEST_CASE("microtrench band under tilted walls", "[reflected]") {
         const double off = 0.5 * floor - std::fabs(c.x);
         return c.z < -height + 1e-6 && off < width - 1 && off > 0;
     };
-    const Estimate band = average(r, s, in_band);
+    const Mean band = average(r, s, in_band);
     CAPTURE(alpha, band.value, band.error, expected);
     CHECK(band.error < 0.01 * expected);
     CHECK(std::fabs(band.value - expected) < 4 * band.error + 1e-3 * expected);
     CHECK(std::fabs(band.value - 1.03 * expected) > 4 * band.error + 1e-3 * expected);
-    const Estimate beyond = average(r, s, [&](const Vec3& c) {
+    const Mean beyond = average(r, s, [&](const Vec3& c) {
         return c.z < -height + 1e-6 && 0.5 * floor - std::fabs(c.x) > width + 1;
     });
     CHECK(beyond.value < 1e-9);
     // Uniform: outer and inner half of the band agree.
-    const Estimate outer = average(r, s, [&](const Vec3& c) {
+    const Mean outer = average(r, s, [&](const Vec3& c) {
         return in_band(c) && 0.5 * floor - std::fabs(c.x) < 0.5 * width;
     });
     CHECK(std::fabs(outer.value - expected) < 4 * outer.error + 2e-3 * expected);
@@ -182,26 +155,24 @@ TEST_CASE("reflected ions: weight is kept", "[reflected]") {
     d.spacing = 2;
     d.cells_x = 40;
     const Surface s = tests::trench(d, 40, 200, 2.0);
-    const RayCaster caster(d, s, 4);
     std::vector<int> material;
     for (const Vec3& n : s.normal)
         material.push_back(std::fabs(n.x) > 0.5 ? 1 : 0);
     IonReflection wall = mirror_law(1.0);
     wall.scatter_deg = 3;
+    const OneIon one(d, s, IonDistribution::gaussian(100, 0.1));
     const auto trace = [&](double probability) {
         wall.probability = probability;
-        return trace_reflected(d, s, caster, material,
-                               {{"X+", 40, 1.0, IonDistribution::gaussian(100, 0.1)}},
-                               {{0, per_ion}}, {mirror_law(0), wall}, {});
+        return trace_reflected(d, s, one.caster, material, one.ions, {mirror_law(0), wall}, {});
     };
     const auto floor = [](const Vec3& c) { return c.z < -199.99; };
     const auto full = average(trace(1.0), s, floor);
     // Walls that reflect all: floor receives reflected = mouth (40) - direct - what scatters out.
     const double b = 1 / (std::sqrt(2.0) * 0.1 * 5);
-    const double direct = std::erf(b) - (1 - std::exp(-b * b)) / (b * std::sqrt(pi));
-    CAPTURE(full.value, full.error, direct);
-    CHECK(full.value < 1 - direct + 4 * full.error);
-    CHECK(full.value > 0.97 * (1 - direct));
+    const double unreflected = std::erf(b) - (1 - std::exp(-b * b)) / (b * std::sqrt(pi));
+    CAPTURE(full.value, full.error, unreflected);
+    CHECK(full.value < 1 - unreflected + 4 * full.error);
+    CHECK(full.value > 0.97 * (1 - unreflected));
     const auto half = average(trace(0.5), s, floor);
     CHECK(half.value < 0.5 * full.value + 4 * half.error);
     CHECK(half.value > 0.25 * full.value);
@@ -214,16 +185,15 @@ TEST_CASE("reflected ions: same bits for any number of threads", "[reflected]") 
     Domain d;
     d.cells_x = 80;
     const Surface s = tests::trench(d, 40, 120, 1.0);
-    const RayCaster caster(d, s, 5);
     const std::vector<int> material(s.size(), 0);
+    const OneIon one_ion(d, s, IonDistribution::thermal_fall(100, 0.3, 0.3), 1,
+                         {SquareRootLaw{0.1, 20}, FlatAngle{}, 1});
     const auto run = [&](int threads, std::uint64_t refresh) {
         tbb::global_control limit(tbb::global_control::max_allowed_parallelism, threads);
         ReflectionOptions options;
         options.ions_per_species = 16384;
         options.refresh = refresh;
-        return trace_reflected(d, s, caster, material,
-                               {{"Ar+", 40, 1.0, IonDistribution::thermal_fall(100, 0.3, 0.3)}},
-                               {{0, {SquareRootLaw{0.1, 20}, FlatAngle{}, 1}}}, {IonReflection{}},
+        return trace_reflected(d, s, one_ion.caster, material, one_ion.ions, {IonReflection{}},
                                options)
             .value;
     };

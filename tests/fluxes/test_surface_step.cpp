@@ -318,9 +318,11 @@ TEST_CASE("reflected ions join the direct ones", "[surface_step]") {
                              reflection, scene.sources, scene.sampling, nullptr);
     };
     const SurfaceStep with = run(laws), without = run({});
-    const ReflectedIons bounced = trace_reflected(
-        scene.domain, scene.surface, caster, std::vector<int>(scene.surface.size(), 0),
-        scene.sources.ions, scene.mechanism.tallies, laws, {16384, 1, 0});
+    const DirectIons direct(scene.domain, scene.surface, caster, scene.sources.ions,
+                            scene.mechanism.tallies, {});
+    const ReflectedIons bounced =
+        trace_reflected(scene.domain, scene.surface, caster,
+                        std::vector<int>(scene.surface.size(), 0), direct, laws, {16384, 1, 0});
     const std::size_t n = scene.surface.size();
     double gain = 0;
     for (std::size_t e = 0; e < n; ++e) {

@@ -1,0 +1,238 @@
+// SPDX-License-Identifier: Apache-2.0
+#include "fluxes/first_strikes.hpp"
+
+#include "fluxes/ion_reflection.hpp"
+
+#include <tbb/parallel_for.h>
+
+#include <algorithm>
+#include <cmath>
+
+namespace rille::fluxes {
+namespace {
+
+constexpr double pi = 3.14159265358979323846;
+constexpr double steepest = 1e4; ///< slope that stands for 90 deg in the guide
+
+/// Index i with below[i] <= at < below[i + 1], of positive width, and the part below `at` in it.
+struct Drawn {
+    std::size_t index;
+    double part;
+};
+Drawn draw_from(const std::vector<double>& below, double u) {
+    const double at = u * below.back();
+    auto above = std::upper_bound(below.begin(), below.end(), at);
+    if (above == below.end()) above = std::lower_bound(below.begin(), below.end(), below.back());
+    const std::size_t i = above - below.begin() - 1;
+    return {i, std::clamp((at - below[i]) / (below[i + 1] - below[i]), 0.0, 1.0)};
+}
+
+double slope_of(double phi) {
+    return std::clamp(std::fabs(phi) < 0.5 * pi ? std::tan(phi) : std::copysign(steepest, phi),
+                      -steepest, steepest);
+}
+
+/// Ion of one slope in the plane; out of the plane as the node says (to which side does not matter
+/// where nothing varies along y).
+IonSample ion_of(const InPlane& plane, const InPlane::Node& node, double slope, double u) {
+    const auto& spectrum = plane.spectra[node.spectrum];
+    std::size_t k = 0;
+    for (; k + 1 < spectrum.size() && u >= spectrum[k].share; ++k)
+        u -= spectrum[k].share;
+    const double across =
+        std::max(0.0, 1 / (node.cos_polar * node.cos_polar) - 1 - node.slope * node.slope);
+    return {spectrum[k].energy_ev, Vec3(-slope, std::sqrt(across), -1).normalized()};
+}
+
+} // namespace
+
+ReflectionBound::ReflectionBound(const std::vector<IonReflection>& laws) {
+    for (const IonReflection& law : laws)
+        for (int i = 0; i <= cells; ++i)
+            table_.push_back(reflection_probability(law, double(i) / cells));
+}
+
+ExtrudedStrikes::ExtrudedStrikes(const StrikeScene& scene)
+    : scene_(scene), sky_(scene.domain, scene.surface) {
+    const IonTables& tables = scene.direct.tables();
+    const int count = static_cast<int>(scene.surface.size());
+    guide_.resize(tables.ions().size());
+    for (std::size_t s = 0; s < guide_.size(); ++s) {
+        const InPlane& plane = tables.in_plane(static_cast<int>(s));
+        Guide& guide = guide_[s];
+        guide.table = table_of(plane);
+        guide.element.resize(count);
+        tbb::parallel_for(0, count,
+                          [&](int e) { guide.element[e] = guide_of(plane, guide.table, e); });
+        guide.below.assign(1, 0.0);
+        for (int e = 0; e < count; ++e) {
+            const auto& below = guide.element[e].below;
+            const double own = below.empty() ? 0 : below.back();
+            guide.below.push_back(guide.below.back() +
+                                  tables.ions()[s].flux * scene.surface.area[e] * own);
+        }
+    }
+}
+
+ExtrudedStrikes::PlaneTable ExtrudedStrikes::table_of(const InPlane& plane) {
+    PlaneTable table;
+    for (const double angle : plane.angle) {
+        table.slope.push_back(slope_of(angle));
+        table.sine.push_back(std::sin(angle));
+    }
+    table.share.assign(plane.angle.size() - 1, 0.0);
+    table.first_node.assign(plane.angle.size(), 0);
+    for (const InPlane::Node& node : plane.nodes) {
+        table.share[node.bin] += node.weight;
+        ++table.first_node[node.bin + 1];
+        table.least_cosine = std::min(table.least_cosine, node.cos_polar);
+    }
+    for (std::size_t b = 1; b < table.first_node.size(); ++b)
+        table.first_node[b] += table.first_node[b - 1];
+    return table;
+}
+
+/// What any place of the element may see: along a segment both horizons turn one way.
+Visible ExtrudedStrikes::sky_over(int e) const {
+    if (sky_.floating_pieces()) return {-0.5 * pi, 0.5 * pi};
+    Visible sky{0.5 * pi, -0.5 * pi};
+    for (const double part : {0.0, 1.0})
+        for (const Visible& seen : sky_.visible(e, part)) {
+            sky.low = std::min(sky.low, seen.low);
+            sky.high = std::max(sky.high, seen.high);
+        }
+    return sky;
+}
+
+ExtrudedStrikes::Bins ExtrudedStrikes::guide_of(const InPlane& plane, const PlaneTable& table,
+                                                int e) const {
+    Bins bins;
+    const int material = scene_.material[e];
+    const Visible sky = scene_.bound(material, 0) > 0 ? sky_over(e) : Visible{};
+    if (!(sky.low < sky.high)) return bins;
+    bins.low = plane.place(sky.low);
+    bins.high = plane.place(sky.high);
+    const Vec3 &own = scene_.surface.normal[e], &mean = scene_.normal[e];
+    // Turning out of the beam is monotonic in the slope, so the ends of an interval decide.
+    const auto facing = [&](int b, int to) {
+        return std::min(mean.z + table.slope[b] * mean.x, mean.z + table.slope[to] * mean.x);
+    };
+    if (!(scene_.bound(material, facing(bins.low.bin, bins.high.bin + 1) * table.least_cosine) > 0))
+        return bins;
+    bins.below.assign(1, 0.0);
+    for (int b = bins.low.bin; b <= bins.high.bin; ++b) {
+        const double received = 0.5 * (std::max(0.0, own.z + table.slope[b] * own.x) +
+                                       std::max(0.0, own.z + table.slope[b + 1] * own.x));
+        double sum = 0;
+        if (received > 0)
+            for (int n = table.first_node[b]; n < table.first_node[b + 1]; ++n)
+                sum += plane.nodes[n].weight *
+                       scene_.bound(material, facing(b, b + 1) * plane.nodes[n].cos_polar);
+        bins.below.push_back(bins.below.back() + received * sum * std::max(0.0, bins.width(b)));
+    }
+    if (!(bins.below.back() > 0)) bins.below.clear();
+    return bins;
+}
+
+double ExtrudedStrikes::total(int ion, int) const {
+    return guide_[ion].below.back();
+}
+
+Strike ExtrudedStrikes::draw(int ion, int, const ScrambledPoints& points, std::uint32_t index,
+                             int count) const {
+    const InPlane& plane = scene_.direct.tables().in_plane(ion);
+    // Where an ion lands next follows from its place and its in-plane deflection before all else.
+    const auto p0 = points.pair(index, 0), p1 = points.pair(index, 1), p2 = points.pair(index, 2);
+    const Drawn place = draw_from(guide_[ion].below, p0[0]);
+    const int e = static_cast<int>(place.index);
+    const PlaneTable& table = guide_[ion].table;
+    const Bins& bins = guide_[ion].element[e];
+    const Drawn drawn = draw_from(bins.below, p1[0]);
+    const int b = bins.low.bin + static_cast<int>(drawn.index);
+    // Inside a bin the flux is uniform in the sine of the angle.
+    const double sine = table.sine[b] + (table.sine[b + 1] - table.sine[b]) *
+                                            (bins.from(b) + bins.width(b) * drawn.part);
+    const double phi = std::asin(std::clamp(sine, -1.0, 1.0));
+    const double slope =
+        std::min(std::fabs(sine) / std::sqrt(std::max(1e-16, 1 - sine * sine)), steepest) *
+        (sine < 0 ? -1 : 1);
+    const Vec3& normal = scene_.surface.normal[e];
+    const double received = normal.z + slope * normal.x;
+    if (received <= 0) return {};
+    const auto seen = sky_.visible(e, place.part);
+    if (std::none_of(seen.begin(), seen.end(),
+                     [&](const Visible& v) { return v.low <= phi && phi <= v.high; }))
+        return {};
+    int node = table.first_node[b];
+    double left = p2[0] * table.share[b];
+    for (; node + 1 < table.first_node[b + 1] && left >= plane.nodes[node].weight; ++node)
+        left -= plane.nodes[node].weight;
+    const auto& corners = scene_.surface.corners[e];
+    const Vec3 &a = scene_.surface.vertices[corners[0]], &z = scene_.surface.vertices[corners[1]];
+    // (flux there) / (density of the draw) / count, the area of the element in both.
+    const double density = bins.below[drawn.index + 1] - bins.below[drawn.index];
+    const double carried =
+        received * table.share[b] * bins.width(b) / density * guide_[ion].below.back() / count;
+    return {e,       a + (z - a) * place.part,
+            normal,  ion_of(plane, plane.nodes[node], slope, p2[1]),
+            carried, {p0[1], p1[1]}};
+}
+
+double FullStrikes::guide(int ion, int element, int ray) const {
+    const DirectIons::SeenRay& seen = scene_.direct.seen(ion, element)[ray];
+    if (!(seen.received > 0)) return 0;
+    return seen.received * scene_.bound(scene_.material[element], seen.cosine);
+}
+
+FullStrikes::FullStrikes(const StrikeScene& scene) : scene_(scene) {
+    const auto& ions = scene.direct.tables().ions();
+    const int per_batch = scene.direct.rays_per_batch();
+    const std::size_t count = scene.surface.size();
+    std::vector<double> area(count); // of warped quads more than their projection
+    for (std::size_t e = 0; e < count; ++e)
+        area[e] = launch_area(scene.surface, static_cast<int>(e));
+    below_.resize(ions.size() * batches);
+    tbb::parallel_for(std::size_t(0), below_.size(), [&](std::size_t i) {
+        const int ion = static_cast<int>(i) / batches, batch = static_cast<int>(i) % batches;
+        below_[i].assign(1, 0.0);
+        below_[i].reserve(count + 1);
+        for (std::size_t e = 0; e < count; ++e) {
+            double sum = 0;
+            for (int k = 0; k < per_batch; ++k)
+                sum += guide(ion, static_cast<int>(e), batch * per_batch + k);
+            below_[i].push_back(below_[i].back() + sum * ions[ion].flux * area[e] / per_batch);
+        }
+    });
+}
+
+double FullStrikes::total(int ion, int batch) const {
+    return below_[ion * batches + batch].back();
+}
+
+Strike FullStrikes::draw(int ion, int batch, const ScrambledPoints& points, std::uint32_t index,
+                         int count) const {
+    const int per_batch = scene_.direct.rays_per_batch();
+    const auto& below = below_[ion * batches + batch];
+    const auto p0 = points.pair(index, 0);
+    const Drawn drawn = draw_from(below, p0[0]);
+    const int e = static_cast<int>(drawn.index);
+    double all = 0;
+    for (int k = 0; k < per_batch; ++k)
+        all += guide(ion, e, batch * per_batch + k);
+    double left = drawn.part * all;
+    int ray = -1;
+    for (int k = 0; k < per_batch && (ray < 0 || left >= 0); ++k) {
+        const double own = guide(ion, e, batch * per_batch + k);
+        if (!(own > 0)) continue;
+        ray = k;
+        left -= own;
+    }
+    const DirectIons::SeenRay& seen = scene_.direct.seen(ion, e)[batch * per_batch + ray];
+    const auto start = scene_.direct.ray(scene_.surface, ion, e, batch, ray);
+    const double carried =
+        below.back() / count * seen.received / guide(ion, e, batch * per_batch + ray);
+    return {e,         start.from.point, start.from.normal,
+            start.ion, carried,          {p0[1], points.pair(index, 1)[0]}};
+}
+
+} // namespace rille::fluxes
