@@ -23,6 +23,7 @@ void Simulation::visit(Archive& archive, Self& self) {
     archive(self.step_start_s_);
     archive(self.start_distance_);
     archive(self.neck_limit_s_);
+    archive(self.pace_);
     archive(self.step_index_);
     archive(self.plasma_step_);
     archive(self.all_reached_);
