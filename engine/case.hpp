@@ -82,13 +82,13 @@ struct Case {
     int ions_per_species = 8192;
     double refresh_move = 0.5; ///< [cells] arrivals are renewed after this movement of the front,
     double refresh_change =
-        0.02; ///< or after about this relative change of the rates that they make
-    std::vector<InputFile> inputs;
-    /// The case as understood, every default filled in; named files by the names of their copies,
-    /// so that it can be run again from the folder that a run leaves.
-    std::string resolved_yaml;
-    std::string shown_yaml; ///< the same with the absolute paths of named files
+        0.02;                  ///< or after about this relative change of the rates that they make
+    std::string resolved_yaml; ///< the case as understood, every default filled in
     std::vector<std::string> warnings;
+    /// What resolved_yaml names by the names of its copies, so that it can be run again from the
+    /// folder that a run leaves.
+    std::vector<InputFile> inputs;
+    std::string shown_yaml; ///< resolved_yaml with the absolute paths of named files
 };
 
 } // namespace rille::engine

@@ -189,16 +189,16 @@ Rule make_case_rules() {
                   "how often the shape is written")
              .by_default("{}"),
          map_rule("sampling",
-                  {integer_rule("rays_per_point", {8, 1048576},
+                  {quantity_rule("renew_after", D::share, {0, 1, true, false},
+                                 "share of a cell that the front moves before arrivals are traced "
+                                 "again; smaller is slower")
+                       .by_default("50 %"),
+                   integer_rule("rays_per_point", {8, 1048576},
                                 "rays from each surface point for neutrals, a multiple of 8")
                        .by_default("64"),
                    integer_rule("ions_per_species", {8, 1073741824.0},
                                 "ions followed for reflections, a multiple of 8")
                        .by_default("8192"),
-                   quantity_rule("renew_after", D::share, {0, 1, true, false},
-                                 "share of a cell that the front moves before arrivals are "
-                                 "traced again; smaller is slower")
-                       .by_default("50 %"),
                    integer_rule("seed", {0, 9007199254740991.0}, "same seed, same bits")
                        .by_default("1")},
                   "how finely arrivals are sampled")

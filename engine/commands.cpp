@@ -53,7 +53,8 @@ std::string utc_now() {
 /// Shows progress and writes frames as they come.
 class RunWatcher : public RunObserver {
 public:
-    RunWatcher(RunOutput& output, Progress& progress) : output_(output), progress_(progress) {}
+    RunWatcher(RunOutput& output, Progress& progress, const std::atomic<bool>& stop)
+        : output_(output), progress_(progress), stop_(stop) {}
     void progressed(const Simulation&, const HistoryRow& row, double share) override {
         ProgressState state;
         state.share = share;
@@ -64,10 +65,20 @@ public:
     }
     void framed(const SurfaceState& state) override { output_.add_frame(state); }
     void warned(const std::string& text) override { progress_.note("warning: " + text); }
+    /// With each frame, at least twice a minute, and when the run is told to stop.
+    void resumable(bool frame_due, const std::function<RunState()>& state) override {
+        const auto now = Clock::now();
+        if (!frame_due && !stop_ && now - saved_ < std::chrono::seconds(30)) return;
+        output_.save(state());
+        saved_ = now;
+    }
 
 private:
+    using Clock = std::chrono::steady_clock;
     RunOutput& output_;
     Progress& progress_;
+    const std::atomic<bool>& stop_;
+    Clock::time_point saved_;
 };
 
 /// The latest frame in a run's folder. Throws OutputError if there is none.
@@ -90,18 +101,14 @@ int threads_in_use(const CommonOptions& options) {
                                : static_cast<int>(std::thread::hardware_concurrency());
 }
 
-} // namespace
-
-int run_command(const std::string& case_path, const std::string& folder, bool force,
-                const CommonOptions& options, const std::atomic<bool>& stop) {
-    const Case the_case = load(case_path, options);
-    OutputFolder out(folder,
-                     force ? OutputFolder::Existing::force : OutputFolder::Existing::refuse);
+/// Runs to the end with everything that is told and written on the way; the exit status.
+int follow(const Case& the_case, const std::string& folder, RunOutput& output,
+           const CommonOptions& options, const std::atomic<bool>& stop,
+           const std::function<RunResult(RunObserver&)>& go) {
     const std::string started = utc_now();
-    RunOutput output(out, the_case);
     Progress progress(std::cerr, Progress::style_for(STDERR_FILENO, options.quiet));
-    RunWatcher watcher(output, progress);
-    RunResult result = run_case(the_case, watcher, stop);
+    RunWatcher watcher(output, progress, stop);
+    RunResult result = go(watcher);
     progress.finish();
     result.record.command = options.command_line;
     result.record.threads = threads_in_use(options);
@@ -113,6 +120,34 @@ int run_command(const std::string& case_path, const std::string& folder, bool fo
         std::cout << closing_text(the_case, result.record, metrics, folder);
     if (result.error) std::rethrow_exception(result.error);
     return result.record.status == "interrupted" ? interrupted_status : 0;
+}
+
+} // namespace
+
+int run_command(const std::string& case_path, const std::string& folder, bool force,
+                const CommonOptions& options, const std::atomic<bool>& stop) {
+    const Case the_case = load(case_path, options);
+    OutputFolder out(folder,
+                     force ? OutputFolder::Existing::force : OutputFolder::Existing::refuse);
+    RunOutput output(out, the_case);
+    return follow(the_case, folder, output, options, stop,
+                  [&](RunObserver& watcher) { return run_case(the_case, watcher, stop); });
+}
+
+int resume_command(const std::string& folder, const CommonOptions& options,
+                   const std::atomic<bool>& stop) {
+    namespace fs = std::filesystem;
+    const std::string path = (fs::path(folder) / output_names::state).string();
+    OutputFolder out(folder, OutputFolder::Existing::keep);
+    if (!fs::exists(path))
+        throw OutputError(folder, "cannot take up the run",
+                          "no saved state is here; the run came to its end, or has yet to begin");
+    const Case the_case = load((fs::path(folder) / output_names::resolved_case).string(), options);
+    const RunState state = read_state(the_case, read_file(path), path);
+    RunOutput output(out, the_case, state.frames);
+    return follow(the_case, folder, output, options, stop, [&](RunObserver& watcher) {
+        return resume_case(the_case, state, watcher, stop);
+    });
 }
 
 int check_command(const std::string& case_path, const CommonOptions& options) {

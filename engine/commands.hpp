@@ -25,6 +25,8 @@ struct CommonOptions {
 /// Each command returns its exit status and throws InputError, OutputError, NumericsError.
 int run_command(const std::string& case_path, const std::string& folder, bool force,
                 const CommonOptions&, const std::atomic<bool>& stop);
+/// Takes up the run that was stopped in `folder`.
+int resume_command(const std::string& folder, const CommonOptions&, const std::atomic<bool>& stop);
 int check_command(const std::string& case_path, const CommonOptions&);
 /// Prints what reaches the wafer in every plasma of a case; writes tables and the picture into
 /// `folder` unless it is empty.

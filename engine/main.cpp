@@ -29,20 +29,23 @@ void on_signal(int number) {
     if (!quiet && write(STDERR_FILENO, stopping, sizeof stopping - 1) < 0) quiet = 1;
 }
 
-void add_common(CLI::App& command, engine::CommonOptions& options) {
+void add_overrides(CLI::App& command, engine::CommonOptions& options) {
     command
         .add_option("--set", options.overrides,
                     "Replace a value of the case, for example mask.openings.trench.cd='70 nm'; "
                     "may be given several times")
         ->type_name("KEY=VALUE")
         ->allow_extra_args(false);
+}
+
+void add_common(CLI::App& command, engine::CommonOptions& options) {
     command.add_option("--threads", options.threads, "Threads to use (default: all cores)")
         ->check(CLI::Range(1, 4096).description(""))
         ->type_name("N");
     command.add_flag("--json", options.json, "Print the result as JSON");
 }
 
-void add_run_options(CLI::App& command, engine::CommonOptions& options) {
+void add_seed(CLI::App& command, engine::CommonOptions& options) {
     command
         .add_option("--seed", options.seed, "Seed of everything random, instead of sampling.seed")
         ->check(CLI::Validator(
@@ -52,7 +55,6 @@ void add_run_options(CLI::App& command, engine::CommonOptions& options) {
             },
             ""))
         ->type_name("N");
-    command.add_flag("--quiet", options.quiet, "Print nothing but errors");
 }
 
 /// What is wrong with the words of the command line where a command or an option is unknown; else
@@ -95,7 +97,9 @@ int dispatch(int argc, char** argv) {
     std::string path, folder = "out";
     bool force = false;
     auto* run = app.add_subcommand("run", "Etch a case and write the result into a folder; Ctrl-C "
-                                          "stops it and leaves what it has");
+                                          "stops it, leaves what it has, and resume goes on");
+    auto* resume = app.add_subcommand("resume", "Take up a run that was stopped; the result is the "
+                                                "same as without the stop");
     auto* check = app.add_subcommand("check", "Read a case, show it in full and what it will cost");
     std::string sheath_folder;
     auto* sheath = app.add_subcommand(
@@ -113,11 +117,17 @@ int dispatch(int argc, char** argv) {
     sheath->add_flag("--force", force, "Replace what an earlier command left in the folder");
     sheath->footer("Voltages are those of a model, not permitted settings of a tool.\n" +
                    std::string(engine::caution));
+    resume->add_option("folder", folder, "Folder of the run")->type_name("DIR")->required();
+    resume->footer(engine::caution);
     measure->add_option("folder", folder, "Folder of a run")->type_name("DIR")->required();
     for (CLI::App* command : {run, check, sheath, measure})
+        add_overrides(*command, options);
+    for (CLI::App* command : {run, resume, check, sheath, measure})
         add_common(*command, options);
-    add_run_options(*run, options);
-    add_run_options(*sheath, options);
+    for (CLI::App* command : {run, sheath})
+        add_seed(*command, options);
+    for (CLI::App* command : {run, resume, sheath})
+        command->add_flag("--quiet", options.quiet, "Print nothing but errors");
     try {
         app.parse(argc, argv);
     } catch (const CLI::ParseError& error) {
@@ -136,7 +146,8 @@ int dispatch(int argc, char** argv) {
     quiet = options.quiet;
     std::signal(SIGINT, on_signal);
     std::signal(SIGTERM, on_signal);
-    const int status = engine::run_command(path, folder, force, options, stop);
+    const int status = *resume ? engine::resume_command(folder, options, stop)
+                               : engine::run_command(path, folder, force, options, stop);
     return status == engine::interrupted_status ? 128 + signal_number : status;
 }
 

@@ -27,6 +27,14 @@ public:
     double time_to(double z, const std::string& plasma) const;
     void advance(double dt_s, const std::string& plasma);
 
+    /// What changes as time goes on, for saving and reading back.
+    template <class Archive, class Self>
+    static void visit(Archive& archive, Self& self) {
+        archive(self.height_);
+        archive(self.grown_);
+        archive(self.grown_material_);
+    }
+
 private:
     const Case& case_;
     geometry::Stack stack_;

@@ -62,6 +62,7 @@ void remove_earlier_run(const std::string& path) {
         if (error) throw OutputError(path + "/" + name, "cannot remove the file", error.message());
         remove_quietly(temporary(fs::path(path) / name)); // of a run that was killed
     }
+    remove_quietly((fs::path(path) / output_names::state).string());
     const fs::path frames = fs::path(path) / output_names::frames;
     if (!fs::is_directory(frames, error)) return;
     for (const auto& entry : fs::directory_iterator(frames, error))
@@ -73,8 +74,10 @@ void remove_earlier_run(const std::string& path) {
 
 OutputFolder::OutputFolder(std::string path, Existing existing) : path_(std::move(path)) {
     if (path_.empty()) throw OutputError("(empty)", "cannot make the folder", "no name given");
-    make_folder(path_);
     std::error_code error;
+    if (existing == Existing::keep && !fs::is_directory(path_, error))
+        throw OutputError(path_, "cannot look into the folder", "there is none of this name");
+    make_folder(path_);
     const bool empty = fs::is_empty(path_, error);
     if (error) throw OutputError(path_, "cannot look into the folder", error.message());
     if (!empty && existing == Existing::refuse)
@@ -88,7 +91,7 @@ OutputFolder::OutputFolder(std::string path, Existing existing) : path_(std::mov
         throw;
     }
     remove_quietly(probe);
-    if (!empty) remove_earlier_run(path_);
+    if (!empty && existing == Existing::force) remove_earlier_run(path_);
 }
 
 void OutputFolder::write(const std::string& name, std::string_view content) {
@@ -121,6 +124,11 @@ void OutputFolder::write_with(const std::string& name,
 void OutputFolder::note(const std::string& name) {
     const auto at = std::lower_bound(written_.begin(), written_.end(), name);
     if (at == written_.end() || *at != name) written_.insert(at, name);
+}
+
+void OutputFolder::remove(const std::string& name) {
+    remove_quietly((fs::path(path_) / name).string());
+    written_.erase(std::remove(written_.begin(), written_.end(), name), written_.end());
 }
 
 std::vector<std::string> OutputFolder::written() const {

@@ -21,11 +21,12 @@ struct OutputError : std::runtime_error {
 /// beside its place, then renamed.
 class OutputFolder {
 public:
-    enum class Existing { refuse, force };
+    enum class Existing { refuse, force, keep };
 
     /// Creates the folder (and its parents) and proves that it can be written, before anything is
     /// computed. A folder that holds anything is refused, or with `force` taken over: what an
-    /// earlier run left under the names that a run writes is removed, other files stay.
+    /// earlier run left under the names that a run writes is removed, other files stay; with `keep`
+    /// everything stays, and the folder must be there.
     /// Throws OutputError.
     OutputFolder(std::string path, Existing existing);
 
@@ -35,12 +36,14 @@ public:
     void write(const std::string& name, std::string_view content);
     /// The same for a writer that needs a path of its own; `writer` gets the temporary one.
     void write_with(const std::string& name, const std::function<void(const std::string&)>& writer);
+    /// Takes a file of an earlier part of the run for written.
+    void note(const std::string& name);
+    /// Removes a file if it is there.
+    void remove(const std::string& name);
     /// Names of the files written so far, sorted.
     std::vector<std::string> written() const;
 
 private:
-    void note(const std::string& name);
-
     std::string path_;
     std::vector<std::string> written_;
 };

@@ -65,42 +65,51 @@ std::string isolated_warning(const IsolatedEvent& event) {
 /// Warnings that a refresh gives rise to, told when they arise and each once.
 class Watch {
 public:
-    Watch(const Case& the_case, RunObserver& observer, RunRecord& record)
-        : case_(the_case), observer_(observer), record_(record) {}
+    Watch(const Case& the_case, RunObserver& observer) : case_(the_case), observer_(observer) {}
 
     void look(const Simulation& simulation, const HistoryRow& row) {
-        const auto& isolated = simulation.isolated_parts();
-        for (; told_ < isolated.size(); ++told_)
-            warn(isolated_warning(isolated[told_]));
-        filled_.resize(row.features.size(), 0);
-        for (std::size_t f = 0; f < row.features.size(); ++f)
-            look_at(row.features[f], case_.mask.openings[f].name, filled_[f], row.time_s);
+        const std::size_t told = warnings_.size();
+        note(simulation, row);
+        for (std::size_t w = told; w < warnings_.size(); ++w)
+            observer_.warned(warnings_[w]);
     }
+    /// What was told before a run was stopped.
+    void recall(const Simulation& simulation, const std::vector<HistoryRow>& history) {
+        for (const HistoryRow& row : history)
+            note(simulation, row);
+    }
+    const std::vector<std::string>& warnings() const { return warnings_; }
 
 private:
-    void look_at(const FeatureRow& feature, const std::string& name, char& filled, double time_s) {
+    void note(const Simulation& simulation, const HistoryRow& row) {
+        const auto& isolated = simulation.isolated_parts();
+        for (; told_ < isolated.size() && isolated[told_].time_s <= row.time_s; ++told_)
+            warnings_.push_back(isolated_warning(isolated[told_]));
+        filled_.resize(row.features.size(), 0);
+        for (std::size_t f = 0; f < row.features.size(); ++f)
+            note_feature(row.features[f], case_.mask.openings[f].name, filled_[f], row.time_s);
+    }
+    void note_feature(const FeatureRow& feature, const std::string& name, char& filled,
+                      double time_s) {
         if (case_.mask.thickness <= 0 || !feature.mask_left) return;
         const double left = *feature.mask_left;
         if (left <= 0 && !mask_gone_) {
             mask_gone_ = true;
-            warn("the mask beside " + name + " is used up, first seen at " + rounded(time_s) +
-                 " s: from then on the film below it is etched too");
+            warnings_.push_back("the mask beside " + name + " is used up, first seen at " +
+                                rounded(time_s) +
+                                " s: from then on the film below it is etched too");
         }
         if (left > 0 && !filled && feature.depth_centre &&
             left + *feature.depth_centre < case_.domain.spacing) {
             filled = 1;
-            warn("opening " + name + " is filled to its top, first seen at " + rounded(time_s) +
-                 " s");
+            warnings_.push_back("opening " + name + " is filled to its top, first seen at " +
+                                rounded(time_s) + " s");
         }
-    }
-    void warn(const std::string& text) {
-        record_.warnings.push_back(text);
-        observer_.warned(text);
     }
 
     const Case& case_;
     RunObserver& observer_;
-    RunRecord& record_;
+    std::vector<std::string> warnings_;
     std::size_t told_ = 0;
     bool mask_gone_ = false;
     std::vector<char> filled_; ///< per opening
@@ -205,42 +214,74 @@ std::vector<std::string> charging_warnings(const Case& the_case, const Expectati
 
 namespace {
 
-/// Steps to the end of the recipe, telling the observer; returns early when `stop` is set.
-void follow_recipe(const Case& the_case, const Expectation& expected, Simulation& simulation,
-                   RunObserver& observer, const std::atomic<bool>& stop, RunResult& result) {
-    std::vector<HistoryRow>& history = result.history;
-    Watch watch(the_case, observer, result.record);
-    const double interval =
-        the_case.frame_interval_s > 0 ? the_case.frame_interval_s : expected.total_s / 10;
-    observer.framed(snapshot(the_case, simulation));
-    double next_frame = interval;
-    while (!simulation.finished() && !stop) {
-        const std::size_t index = simulation.step_index();
-        const double start_s =
-            simulation.outcomes().empty() ? 0.0 : simulation.outcomes().back().end_s;
-        simulation.step(next_frame);
-        history.push_back(history_row(the_case, simulation, the_case.steps[index].name, start_s));
-        const double of_step = simulation.step_index() > index ? 1.0 : simulation.step_progress();
-        watch.look(simulation, history.back());
-        observer.progressed(simulation, history.back(), expected.share(index, of_step));
-        if (simulation.time_s() >= next_frame * (1 - 1e-12)) {
-            if (!simulation.finished()) observer.framed(snapshot(the_case, simulation));
-            next_frame += interval;
-        }
+using Clock = std::chrono::steady_clock;
+
+/// A run on its way: what it needs beside the simulation.
+struct Course {
+    const Case& the_case;
+    RunObserver& observer;
+    const std::atomic<bool>& stop;
+    Simulation simulation;
+    Expectation expected;
+    Watch watch;
+    RunState state; ///< history, next frame and time spent before are kept here
+    Clock::time_point started = Clock::now();
+
+    Course(const Case& c, RunObserver& told, const std::atomic<bool>& stopped)
+        : the_case(c), observer(told), stop(stopped), simulation(c),
+          expected(expect(c, simulation.open_field())), watch(c, told) {}
+    Course(const Case& c, RunObserver& told, const std::atomic<bool>& stopped, const RunState& from)
+        : the_case(c), observer(told), stop(stopped), simulation(c, from.simulation),
+          expected(expect(c)), watch(c, told), state(from) {
+        watch.recall(simulation, state.history);
     }
+    double wall_seconds() const {
+        return state.wall_seconds + std::chrono::duration<double>(Clock::now() - started).count();
+    }
+    double frame_interval() const {
+        return the_case.frame_interval_s > 0 ? the_case.frame_interval_s : expected.total_s / 10;
+    }
+    RunState saved() const {
+        RunState now = state;
+        now.simulation = simulation.save();
+        now.wall_seconds = wall_seconds();
+        now.program = this_program();
+        return now;
+    }
+};
+
+/// One refresh, told to the observer.
+void one_refresh(Course& run) {
+    Simulation& simulation = run.simulation;
+    const std::size_t index = simulation.step_index();
+    const double start_s = simulation.outcomes().empty() ? 0.0 : simulation.outcomes().back().end_s;
+    simulation.step(run.state.next_frame_s);
+    std::vector<HistoryRow>& history = run.state.history;
+    history.push_back(
+        history_row(run.the_case, simulation, run.the_case.steps[index].name, start_s));
+    const double of_step = simulation.step_index() > index ? 1.0 : simulation.step_progress();
+    run.watch.look(simulation, history.back());
+    run.observer.progressed(simulation, history.back(), run.expected.share(index, of_step));
+    const bool frame_due = simulation.time_s() >= run.state.next_frame_s * (1 - 1e-12);
+    if (frame_due) {
+        if (!simulation.finished()) run.observer.framed(snapshot(run.the_case, simulation));
+        run.state.next_frame_s += run.frame_interval();
+    }
+    if (!simulation.finished()) run.observer.resumable(frame_due, [&] { return run.saved(); });
 }
 
-} // namespace
-
-RunResult run_case(const Case& the_case, RunObserver& observer, const std::atomic<bool>& stop) {
-    using Clock = std::chrono::steady_clock;
-    const auto started = Clock::now();
+/// Steps to the end of the recipe, or until `stop` is set.
+RunResult follow_recipe(Course& run) {
     RunResult result;
     RunRecord& record = result.record;
-    Simulation simulation(the_case);
-    const Expectation expected = expect(the_case, simulation.open_field());
+    Simulation& simulation = run.simulation;
     try {
-        follow_recipe(the_case, expected, simulation, observer, stop, result);
+        if (run.state.history.empty()) {
+            run.observer.framed(snapshot(run.the_case, simulation));
+            run.state.next_frame_s = run.frame_interval();
+        }
+        while (!simulation.finished() && !run.stop)
+            one_refresh(run);
         record.status = !simulation.finished()     ? "interrupted"
                         : simulation.all_reached() ? "done"
                                                    : "not cleared";
@@ -249,11 +290,33 @@ RunResult run_case(const Case& the_case, RunObserver& observer, const std::atomi
         record.failure = error.what();
         result.error = std::current_exception();
     }
-    result.last = snapshot(the_case, simulation, record.failure.empty());
-    note_health(the_case, expected, simulation, record);
-    record.wall_seconds = std::chrono::duration<double>(Clock::now() - started).count();
+    result.last = snapshot(run.the_case, simulation, record.failure.empty());
+    record.warnings = run.watch.warnings();
+    note_health(run.the_case, run.expected, simulation, record);
+    record.resumed = run.state.resumed;
+    record.wall_seconds = run.wall_seconds();
+    result.history = std::move(run.state.history);
     const auto front = std::make_shared<geometry::Front>(simulation.front());
     result.write_level_set = [front](const std::string& path) { front->write_vdb(path); };
+    return result;
+}
+
+} // namespace
+
+RunResult run_case(const Case& the_case, RunObserver& observer, const std::atomic<bool>& stop) {
+    Course run(the_case, observer, stop);
+    return follow_recipe(run);
+}
+
+RunResult resume_case(const Case& the_case, const RunState& state, RunObserver& observer,
+                      const std::atomic<bool>& stop) {
+    Course run(the_case, observer, stop, state);
+    ++run.state.resumed;
+    RunResult result = follow_recipe(run);
+    if (state.program != this_program())
+        result.record.warnings.push_back("taken up by another build (" + this_program() +
+                                         " after " + state.program +
+                                         "): the bits may differ from those of an unbroken run");
     return result;
 }
 

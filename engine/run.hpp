@@ -3,9 +3,11 @@
 
 #include "engine/case.hpp"
 #include "engine/run_result.hpp"
+#include "engine/run_state.hpp"
 #include "engine/simulation.hpp"
 
 #include <atomic>
+#include <functional>
 #include <string>
 #include <vector>
 
@@ -21,12 +23,18 @@ public:
     virtual void framed(const SurfaceState&) = 0;
     /// A warning raised at this point of the run; it is kept in the record as well.
     virtual void warned(const std::string&) {}
+    /// After each refresh, when everything of it has been told: the run can be taken up from here.
+    /// `frame_due`: a frame has just been written. `state()` makes the state, but for its frames.
+    virtual void resumable(bool /*frame_due*/, const std::function<RunState()>& /*state*/) {}
 };
 
 /// Runs a case from its first step to its last, or until `stop` is set (seen after each refresh).
 /// record.status tells which. Where the run fails the state before the failure is returned, with
 /// status "failed" and the error.
 RunResult run_case(const Case&, RunObserver&, const std::atomic<bool>& stop);
+/// Takes up a run where `state` left it, and goes on to the same bits.
+RunResult resume_case(const Case&, const RunState& state, RunObserver&,
+                      const std::atomic<bool>& stop);
 
 /// What the recipe is expected to do, from the open field: times as stated, and for steps that end
 /// at a film the open field's time, at most the step's limit.

@@ -27,6 +27,22 @@ RunOutput::RunOutput(OutputFolder& folder, const Case& c) : folder_(folder), cas
     folder_.write(output_names::resolved_case, c.resolved_yaml);
 }
 
+RunOutput::RunOutput(OutputFolder& folder, const Case& c, const std::vector<SeriesEntry>& frames)
+    : RunOutput(folder, c) {
+    for (const SeriesEntry& frame : frames) {
+        const SurfaceState state = read_vtp(c, folder_.path() + "/" + frame.file);
+        fronts_.push_back({frame.time_s, vertical_section(c.domain, state.surface, section_y(c))});
+        series_.push_back(frame);
+        folder_.note(frame.file);
+    }
+    folder_.note(output_names::series);
+}
+
+void RunOutput::save(RunState state) {
+    state.frames = series_;
+    folder_.write(output_names::state, state_text(case_, state));
+}
+
 void RunOutput::add_frame(const SurfaceState& state) {
     if (!series_.empty() && state.time_s <= series_.back().time_s) {
         series_.pop_back(); // a later view of the same instant replaces the earlier one
@@ -45,9 +61,11 @@ Metrics RunOutput::finish(const RunResult& result) {
     if (series_.empty() || result.last.time_s > series_.back().time_s) add_frame(result.last);
     folder_.write(output_names::history, history_csv(case_, result.history));
     folder_.write(output_names::profile, profile_csv(case_, result.last));
-    const Metrics metrics = measure(case_, result.last);
+    Metrics metrics = measure(case_, result.last);
     folder_.write(output_names::metrics, json_text(metrics_json(case_, metrics)));
     if (result.write_level_set) folder_.write_with(output_names::level_set, result.write_level_set);
+    if (result.record.status == "done" || result.record.status == "not cleared")
+        folder_.remove(output_names::state);
     const std::string picture = picture_svg(case_, fronts_, result.last, metrics);
     folder_.write(output_names::picture_svg, picture);
     folder_.write(output_names::picture_png, png_of(picture, png_scale));

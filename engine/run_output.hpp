@@ -5,6 +5,7 @@
 #include "engine/output_folder.hpp"
 #include "engine/picture.hpp"
 #include "engine/run_result.hpp"
+#include "engine/run_state.hpp"
 #include "engine/vtk_files.hpp"
 
 #include <vector>
@@ -17,12 +18,17 @@ class RunOutput {
 public:
     /// Writes the resolved case at once. Both arguments must outlive this object.
     RunOutput(OutputFolder&, const Case&);
+    /// Takes up an earlier part of the run: its frames are read back. Throws OutputError.
+    RunOutput(OutputFolder&, const Case&, const std::vector<SeriesEntry>& frames);
 
+    /// Writes the state from which the run can be taken up, with the frames so far.
+    void save(RunState);
     /// Writes one frame and renews the series file. Times must not fall; the first is the start. A
     /// frame at the time of the one before replaces it.
     void add_frame(const SurfaceState&);
     /// Writes history, profile, metrics, level set, picture and record; adds `result.last` as a
-    /// frame if it is later than the last one. Returns the metrics. May be called again.
+    /// frame if it is later than the last one. Returns the metrics. May be called again. A run that
+    /// came to its end leaves no state to be taken up.
     Metrics finish(const RunResult& result);
 
 private:

@@ -90,6 +90,7 @@ json record_json(const Case& c, const RunRecord& record, const std::vector<std::
             {"inputs", inputs_json(c)},
             {"chemistry", c.chemistry},
             {"started", record.started},
+            {"resumed", record.resumed},
             {"seed", c.seed},
             {"machine", machine_json(record)},
             {"timings", timings},

@@ -36,6 +36,7 @@ struct RunRecord {
     std::vector<StepOutcome> steps;
     std::vector<std::string> warnings; ///< raised during the run; the case's own are added
     double simulated_s = 0;
+    int resumed = 0;                      ///< how often the run was taken up after a stop
     int refreshes = 0;                    ///< of the arrivals
     std::size_t elements = 0, voxels = 0; ///< of the front at the end
     std::uint64_t rays = 0;

@@ -23,7 +23,7 @@ using geometry::Surface;
 using geometry::Vec3;
 
 constexpr double touching = 1e-6;   // [cells] a front this near to a film has reached it
-constexpr int shortest_pace = 3;     // halvings of the longest step
+constexpr int shortest_pace = 3;    // halvings of the longest step
 constexpr double no_film_nm = 1e-9; // thinner grown film counts as none
 
 /// Adds the wall time of its scope to a counter.
@@ -83,8 +83,8 @@ double highest(const Surface& surface) {
 } // namespace
 
 void check_lost_rays(const Health& health) {
-    if (health.lost_rays <= lost_rays_allowed || health.lost_rays <= lost_ray_share * health.rays)
-        return;
+    constexpr std::uint64_t few = 100;
+    if (health.lost_rays <= few || health.lost_rays <= lost_ray_share * health.rays) return;
     throw NumericsError(std::to_string(health.lost_rays) + " of " + std::to_string(health.rays) +
                         " rays ended neither on the surface nor in the open");
 }
@@ -183,7 +183,8 @@ double Simulation::neck_limit(const Surface& surface, const fluxes::SurfaceStep&
 const fluxes::SurfaceStep& Simulation::arrivals() {
     if (!present_valid_) {
         const auto previous = std::move(present_);
-        present_ = solve(surface_, films_, previous.response.empty() ? nullptr : &previous);
+        before_solve_ = {previous.neutral, refresh_, health_};
+        present_ = solve(surface_, films_, &previous);
         present_valid_ = true;
     }
     return present_;

@@ -33,10 +33,8 @@ struct Health {
     int shortened = 0; ///< steps done again because the arrivals changed too much in them
 };
 
-/// A run is not trusted, and stops, once more rays are lost than this number and this share of all.
-constexpr std::uint64_t lost_rays_allowed = 100;
-constexpr double lost_ray_share = 1e-5;
-/// Throws NumericsError beyond both.
+/// A run is not trusted, and stops, once more than 100 rays, and more than 1e-5 of all, are lost:
+/// throws NumericsError.
 void check_lost_rays(const Health&);
 
 /// A void that closed off or a piece that came off, and when it was first seen.
@@ -50,6 +48,11 @@ struct IsolatedEvent {
 class Simulation {
 public:
     explicit Simulation(const Case&);
+    /// The simulation as `save` left it under the same case: it goes on to the same bits. Throws
+    /// NumericsError for a text that is no such state.
+    Simulation(const Case&, const std::string& saved);
+    /// The whole state between two steps.
+    std::string save() const;
 
     bool finished() const { return step_index_ >= case_.steps.size(); }
     /// Advances by one refresh, to the end of the recipe step at most, and not beyond
@@ -89,6 +92,9 @@ private:
         geometry::GrownFilms films; ///< on the elements of the surface before the advance
         geometry::AdvanceReport report;
     };
+    /// Lists what changes from step to step, for saving and reading back.
+    template <class Archive, class Self>
+    static void visit(Archive&, Self&);
     const RecipeStep& recipe() const { return case_.steps[step_index_]; }
     fluxes::MaterialsInReach materials_in_reach(const geometry::Surface&,
                                                 const geometry::GrownFilms&) const;
@@ -124,6 +130,12 @@ private:
     std::vector<geometry::SurfaceField> error_fields_; ///< one per batch
     fluxes::SurfaceStep present_;
     bool present_valid_ = false;
+    /// What the solve of the present arrivals started from: it is done again after a resume.
+    struct BeforeSolve {
+        std::vector<std::vector<double>> neutral;
+        std::uint64_t refresh = 0;
+        Health health;
+    } before_solve_;
     double neck_limit_s_ = 0;     ///< of the last surface that was solved
     int pace_ = 0;                ///< steps are refresh_move / 2^pace_ long at most
     std::size_t plasma_step_ = 0; ///< recipe step whose plasma shapes the arrivals

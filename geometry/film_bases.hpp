@@ -32,6 +32,14 @@ public:
     /// Distance [nm] from p to the solid below film f, interpolated; clamped to +-4 cells.
     double distance(int film, const Vec3& p) const;
     std::size_t memory_bytes() const;
+    /// Hands everything that follow() changes to `archive`, which writes or reads it.
+    template <class Archive, class Self>
+    static void visit(Archive& archive, Self& self) {
+        for (auto& grid : self.grids_) {
+            archive(grid.k_low);
+            archive(grid.layers);
+        }
+    }
 
 private:
     struct Grid {
