@@ -84,6 +84,7 @@ double highest(const Surface& surface) {
 
 void check_lost_rays(const Health& health) {
     constexpr std::uint64_t few = 100;
+    constexpr double lost_ray_share = 1e-5; // a run that loses more is not trusted
     if (health.lost_rays <= few || health.lost_rays <= lost_ray_share * health.rays) return;
     throw NumericsError(std::to_string(health.lost_rays) + " of " + std::to_string(health.rays) +
                         " rays ended neither on the surface nor in the open");
