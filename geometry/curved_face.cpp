@@ -39,24 +39,6 @@ double eighth_power(double x) {
 
 } // namespace
 
-double CurvedFace::value(const Vec3& p) const {
-    const Vec3 d = p - origin;
-    const double a = d.dot(across), b = d.dot(along);
-    const double top = height[0] + height[1] * a + height[2] * b +
-                       0.5 * (height[3] * a * a + height[4] * b * b) + height[5] * a * b;
-    const double ga = height[1] + height[3] * a + height[5] * b;
-    const double gb = height[2] + height[4] * b + height[5] * a;
-    return (d.dot(normal) - top) / std::sqrt(1 + ga * ga + gb * gb);
-}
-
-Vec3 CurvedFace::normal_at(const Vec3& p) const {
-    const Vec3 d = p - origin;
-    const double a = d.dot(across), b = d.dot(along);
-    const double ga = height[1] + height[3] * a + height[5] * b;
-    const double gb = height[2] + height[4] * b + height[5] * a;
-    return (normal - across * ga - along * gb).normalized();
-}
-
 void CurvedFace::fit(const std::vector<FaceSample>& samples, int f, bool curved) {
     Vec3 point(0, 0, 0), mean(0, 0, 0);
     double steady = 0;
@@ -77,33 +59,72 @@ void CurvedFace::fit(const std::vector<FaceSample>& samples, int f, bool curved)
     across = helper.cross(normal).normalized();
     along = normal.cross(across);
     if (!curved) return;
-    using Matrix = Eigen::Matrix<double, 6, 6>;
-    using Vector = Eigen::Matrix<double, 6, 1>;
-    Matrix left = Matrix::Zero();
-    Vector right = Vector::Zero();
-    const auto add = [&](const Vector& row, double value, double by) {
-        left.noalias() += by * row * row.transpose();
-        right.noalias() += by * value * row;
-    };
+    // Sums of weight a^m b^n that the normal equations are made of: `p` over positions, `q` over
+    // normals.
+    double p[5][5] = {}, q[3][3] = {}, right[6] = {};
     for (const FaceSample& s : samples) {
-        if (s.face != f || s.weight < 1e-6) continue;
+        if (s.face != f || s.weight + s.steady < 1e-6) continue;
         const Vec3 d = s.point - origin;
         const double a = d.dot(across), b = d.dot(along), n = s.normal.dot(normal);
-        Vector row;
-        row << 1, a, b, 0.5 * a * a, 0.5 * b * b, a * b;
-        add(row, d.dot(normal), s.weight);
+        const double powers_a[5] = {1, a, a * a, a * a * a, a * a * a * a};
+        double w = s.weight;
+        for (int j = 0; j < 5; ++j, w *= b)
+            for (int i = 0; i + j < 5; ++i)
+                p[i][j] += w * powers_a[i];
+        const double c = s.weight * d.dot(normal);
+        right[0] += c;
+        right[1] += c * a;
+        right[2] += c * b;
+        right[3] += 0.5 * c * a * a;
+        right[4] += 0.5 * c * b * b;
+        right[5] += c * a * b;
         if (n < 0.3) continue;
-        row << 0, 1, 0, a, 0, b;
-        add(row, -s.normal.dot(across) / n, s.steady);
-        row << 0, 0, 1, 0, b, a;
-        add(row, -s.normal.dot(along) / n, s.steady);
+        w = s.steady;
+        const double ga = -w * s.normal.dot(across) / n, gb = -w * s.normal.dot(along) / n;
+        q[0][0] += w;
+        q[1][0] += w * a;
+        q[0][1] += w * b;
+        q[2][0] += w * a * a;
+        q[1][1] += w * a * b;
+        q[0][2] += w * b * b;
+        right[1] += ga;
+        right[2] += gb;
+        right[3] += ga * a;
+        right[4] += gb * b;
+        right[5] += ga * b + gb * a;
     }
+    using Matrix = Eigen::Matrix<double, 6, 6>;
+    using Vector = Eigen::Matrix<double, 6, 1>;
+    Matrix left; // rows and columns: 1, a, b, a^2 / 2, b^2 / 2, a b
+    static constexpr int power_a[6] = {0, 1, 0, 2, 0, 1}, power_b[6] = {0, 0, 1, 0, 2, 1};
+    static constexpr double factor[6] = {1, 1, 1, 0.5, 0.5, 1};
+    for (int m = 0; m < 6; ++m)
+        for (int n = 0; n < 6; ++n)
+            left(m, n) =
+                factor[m] * factor[n] * p[power_a[m] + power_a[n]][power_b[m] + power_b[n]];
+    // Slopes along a: 1 for a, a for a^2 / 2, b for a b; along b: 1 for b, b for b^2 / 2, a for a
+    // b.
+    const auto add = [&left](int m, int n, double value) {
+        left(m, n) += value;
+        if (m != n) left(n, m) += value;
+    };
+    add(1, 1, q[0][0]);
+    add(1, 3, q[1][0]);
+    add(1, 5, q[0][1]);
+    add(3, 3, q[2][0]);
+    add(3, 5, q[1][1]);
+    add(5, 5, q[0][2] + q[2][0]);
+    add(2, 2, q[0][0]);
+    add(2, 4, q[0][1]);
+    add(2, 5, q[1][0]);
+    add(4, 4, q[0][2]);
+    add(4, 5, q[1][1]);
     const double hold = square(normal_scatter / bend_scale);
     for (int m = 3; m < 6; ++m)
         left(m, m) += hold;
     for (int m = 0; m < 3; ++m)
         left(m, m) += 1e-9;
-    const Vector x = left.ldlt().solve(right);
+    const Vector x = left.ldlt().solve(Eigen::Map<const Vector>(right));
     for (int m = 0; m < 6; ++m)
         height[m] = x[m];
 }
@@ -125,8 +146,9 @@ double LocalSolid::value(const Vec3& p) const {
 
 namespace {
 
-double nearness(const FaceSample& s, double reach) {
-    return std::exp(-0.5 * s.point.dot(s.point) / (reach * reach));
+void measure_nearness(std::vector<FaceSample>& samples) {
+    for (FaceSample& s : samples)
+        s.near = s.trust * std::exp(-0.5 * s.point.dot(s.point) / (near_reach * near_reach));
 }
 
 /// The pair of samples near the vertex whose normals differ most, and a third that differs from
@@ -135,11 +157,14 @@ bool find_seeds(const std::vector<FaceSample>& samples, int (&seed)[3]) {
     const int size = static_cast<int>(samples.size());
     std::vector<double> close(size);
     for (int a = 0; a < size; ++a)
-        close[a] = samples[a].trust * nearness(samples[a], seed_reach);
+        close[a] = samples[a].trust *
+                   std::exp(-0.5 * samples[a].point.length2() / (seed_reach * seed_reach));
     double most = 0;
     seed[0] = seed[1] = seed[2] = -1;
     for (int a = 0; a < size; ++a)
         for (int b = a + 1; b < size; ++b) {
+            const double both = close[a] * close[b];
+            if (2 * both <= most) continue;
             const double turn = 1 - samples[a].normal.dot(samples[b].normal);
             if (turn * close[a] * close[b] <= most + 1e-9 || turn < 1 - edge_cosine) continue;
             most = turn * close[a] * close[b];
@@ -162,11 +187,12 @@ bool find_seeds(const std::vector<FaceSample>& samples, int (&seed)[3]) {
 /// and the other face within the reach of its bend in phi.
 void assign(std::vector<FaceSample>& samples, const LocalSolid& solid) {
     for (FaceSample& s : samples) {
-        double best = 1e300;
+        double best = 1e300, offs[3] = {};
         s.face = -1;
         for (int f = 0; f < solid.count; ++f) {
-            const double off = std::fabs(solid.face[f].value(s.point));
-            const double cosine = s.normal.dot(solid.face[f].normal_at(s.point));
+            const CurvedFace::Place at = solid.face[f].at(s.point);
+            const double off = std::fabs(at.value), cosine = s.normal.dot(at.normal);
+            offs[f] = off;
             const double misfit =
                 square(off / own_distance) + square((1 - cosine) / (1 - own_cosine));
             if (misfit >= best) continue;
@@ -177,10 +203,9 @@ void assign(std::vector<FaceSample>& samples, const LocalSolid& solid) {
         if (s.face < 0) continue;
         double away = steady_beyond;
         for (int f = 0; f < solid.count; ++f)
-            if (f != s.face) away = std::min(away, std::fabs(solid.face[f].value(s.point)));
-        const double near = s.trust * nearness(s, near_reach);
-        s.weight = near * eighth_power(std::min(1.0, away / undisturbed));
-        s.steady = near * eighth_power(away / steady_beyond);
+            if (f != s.face) away = std::min(away, offs[f]);
+        s.weight = s.near * eighth_power(std::min(1.0, away / undisturbed));
+        s.steady = s.near * eighth_power(away / steady_beyond);
     }
 }
 
@@ -205,14 +230,13 @@ bool distinct(const std::vector<FaceSample>& samples, const LocalSolid& solid) {
     double turns[3] = {0, 0, 0}, offsets[3] = {0, 0, 0}, steady[3] = {0, 0, 0};
     for (const FaceSample& s : samples) {
         if (s.face < 0) continue;
-        const CurvedFace& face = solid.face[s.face];
-        turns[s.face] += s.steady * 2 * (1 - s.normal.dot(face.normal_at(s.point)));
+        const CurvedFace::Place at = solid.face[s.face].at(s.point);
+        turns[s.face] += s.steady * 2 * (1 - s.normal.dot(at.normal));
         steady[s.face] += s.steady;
-        offsets[s.face] += s.weight * square(face.value(s.point));
+        offsets[s.face] += s.weight * square(at.value);
     }
     for (int f = 0; f < solid.count; ++f) {
         const double weight = solid.face[f].weight;
-        if (!(weight > (solid.count > 2 ? corner_weight : least_weight))) return false;
         if (turns[f] > steady[f] * square(largest_scatter * angle)) return false;
         if (offsets[f] > weight * square(largest_offset)) return false;
     }
@@ -230,10 +254,11 @@ bool split(std::vector<FaceSample>& samples, const int (&seed)[3], int count, Lo
             nearest = cosine;
             s.face = f;
         }
-        s.weight = s.steady = s.trust * nearness(s, near_reach);
+        s.weight = s.steady = s.near;
     }
     for (int f = 0; f < count; ++f)
         solid.face[f].fit(samples, f, false);
+    const double least = count > 2 ? corner_weight : least_weight;
     for (int round = 0; round < 3; ++round) {
         for (int f = 0; f < count; ++f)
             if (!(solid.face[f].weight > 0)) return false;
@@ -242,7 +267,7 @@ bool split(std::vector<FaceSample>& samples, const int (&seed)[3], int count, Lo
             solid.face[f].fit(samples, f, true);
     }
     for (int f = 0; f < count; ++f)
-        if (!(solid.face[f].weight > 0)) return false;
+        if (!(solid.face[f].weight > least)) return false;
     return distinct(samples, solid);
 }
 
@@ -251,6 +276,7 @@ bool split(std::vector<FaceSample>& samples, const int (&seed)[3], int count, Lo
 bool find_faces(std::vector<FaceSample>& samples, LocalSolid& solid) {
     int seed[3];
     if (samples.size() < 6 || !find_seeds(samples, seed)) return false;
+    measure_nearness(samples);
     return (seed[2] >= 0 && split(samples, seed, 3, solid)) || split(samples, seed, 2, solid);
 }
 

@@ -5,6 +5,7 @@
 #include "geometry/vec.hpp"
 
 #include <array>
+#include <cmath>
 #include <vector>
 
 namespace rille::geometry {
@@ -14,6 +15,7 @@ struct FaceSample {
     Vec3 point, normal;
     int face = -1;     ///< which face it belongs to; -1 none
     double trust = 1;  ///< less where the front bends strongly round it
+    double near = 1;   ///< by distance from the vertex, times trust
     double weight = 1; ///< of the position
     double steady = 1; ///< of the normal
 };
@@ -26,9 +28,22 @@ struct CurvedFace {
     double weight = 0;              ///< of the samples
 
     /// Distance from the face, to first order; > 0 on the side of the gas.
-    double value(const Vec3& p) const;
+    double value(const Vec3& p) const { return at(p).value; }
     /// Unit normal of the face next to p.
-    Vec3 normal_at(const Vec3& p) const;
+    Vec3 normal_at(const Vec3& p) const { return at(p).normal; }
+    struct Place {
+        double value;
+        Vec3 normal;
+    };
+    Place at(const Vec3& p) const {
+        const Vec3 d = p - origin;
+        const double a = d.dot(across), b = d.dot(along);
+        const double ga = height[1] + height[3] * a + height[5] * b;
+        const double gb = height[2] + height[4] * b + height[5] * a;
+        const double top = height[0] + 0.5 * (a * (height[1] + ga) + b * (height[2] + gb));
+        const double scale = 1 / std::sqrt(1 + ga * ga + gb * gb);
+        return {(d.dot(normal) - top) * scale, (normal - across * ga - along * gb) * scale};
+    }
     /// Least squares over positions and normals of the samples of face `f` by their weights.
     void fit(const std::vector<FaceSample>&, int f, bool curved);
 };
