@@ -63,6 +63,8 @@ private:
     }
     double change(const Slopes&, const RowPair&, const RateWindow&, Speed&) const;
     void blend(RowPair&, const BetweenCentres&) const;
+    template <class Take>
+    void sweep(const double* phi, std::size_t begin, std::size_t end, const Take& take) const;
     double layered_change(const Slopes&, const Layers&, double dt) const;
     Speed first_stage();
     void find_layers(LayeredCell&, Speed&);
