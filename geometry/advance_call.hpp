@@ -93,7 +93,7 @@ private:
     std::vector<LayeredCell> layered_;
     std::vector<int> layered_elements_;
     std::vector<Tilt> element_tilt_;
-    std::vector<RateWindow> element_window_; ///< of the material below it, about its normal
+    std::vector<RateWindow> element_window_;      ///< of the material below it, about its normal
     std::vector<double> element_rate_, own_rate_; ///< own: before films are peeled
 };
 
