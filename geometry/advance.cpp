@@ -13,7 +13,9 @@ namespace rille::geometry {
 namespace {
 
 constexpr double unresolved = 0.02; ///< steepness off by more comes from a bend within a cell
-constexpr double edge_margin = 1.4; ///< [cells] the contour may come nearer the edge of the band
+constexpr double most_move = 0.5;    ///< [cells] of one sub-step; less than layer_reach
+constexpr double smooth_share = 0.9; ///< Courant number where no edge is near: stable below 1
+constexpr double edge_margin = 1.4;  ///< [cells] the contour may come nearer the edge of the band
 
 } // namespace
 
@@ -33,6 +35,40 @@ double Advance::change(const Slopes& s, const RowPair& row, const RateWindow& wi
         return speed.rate * steep;
     }
     return lax_friedrichs(tables_, row, window, extruded_, s, speed);
+}
+
+/// Calls take(cell, dphi/dt, speed) for the cells of a range that move, but for layered ones.
+template <class Take>
+void Advance::sweep(const double* phi, std::size_t begin, std::size_t end, const Take& take) const {
+    std::array<FluxCell, 32> cells;
+    std::size_t count = 0;
+    const auto finish = [&] {
+        lax_friedrichs(tables_, extruded_, cells.data(), static_cast<int>(count));
+        for (std::size_t n = 0; n < count; ++n)
+            take(cells[n].cell, cells[n].change, cells[n].speed);
+        count = 0;
+    };
+    for (std::size_t c = begin; c < end; ++c) {
+        const RowPair& row = row_[c];
+        if (row.row < 0) continue;
+        const RateWindow& window = element_window_[element_[c]];
+        if (!tables_.moves(row, window)) continue;
+        if (tables_.constant(row, window)) {
+            Speed speed;
+            const Slopes s = slopes(phi, c);
+            const double rate = change(s, row, window, speed, even_[c]);
+            speed.smooth = smooth(s);
+            take(c, rate, speed);
+            continue;
+        }
+        FluxCell& next = cells[count++];
+        next.cell = c;
+        next.rows = &row;
+        next.window = &window;
+        next.slopes = slopes(phi, c);
+        if (count == cells.size()) finish();
+    }
+    finish();
 }
 
 /// The same at the mean rate over `dt` through layers: each acts for its share of the time.
@@ -68,18 +104,14 @@ Speed Advance::first_stage() {
     const double* phi = band_.phi.data();
     std::vector<double> front(band_.size() / 1024 + 2, 0.0);
     most.waves = largest_of_ranges(band_.size(), [&](std::size_t begin, std::size_t end) {
+        const double ease = limits_.max_share / std::min(2 * limits_.max_share, smooth_share);
         double waves = 0, fastest = 0;
-        for (std::size_t c = begin; c < end; ++c) {
-            const RowPair& row = row_[c];
-            slope_[c] = 0;
-            if (row.row < 0) continue;
-            const RateWindow& window = element_window_[element_[c]];
-            if (!tables_.moves(row, window)) continue;
-            Speed speed;
-            slope_[c] = change(slopes(phi, c), row, window, speed, even_[c]);
-            waves = std::max(waves, speed.waves);
+        std::fill(slope_.begin() + begin, slope_.begin() + end, 0.0);
+        sweep(phi, begin, end, [&](std::size_t c, double change, const Speed& speed) {
+            slope_[c] = change;
+            waves = std::max(waves, speed.smooth ? ease * speed.waves : speed.waves);
             if (std::fabs(phi[c]) < h_) fastest = std::max(fastest, std::fabs(speed.rate));
-        }
+        });
         front[begin / 1024] = fastest;
         return waves;
     });
@@ -93,7 +125,8 @@ double Advance::choose_step(const Speed& most) const {
     double dt = limits_.time - report_.time;
     if (most.waves > 0) dt = std::min(dt, limits_.max_share * h_ / most.waves);
     if (most.rate > 0)
-        dt = std::min(dt, (limits_.max_move - report_.largest_move) * h_ / most.rate);
+        dt = std::min(dt, std::min(most_move, limits_.max_move - report_.largest_move) * h_ /
+                              most.rate);
     return dt;
 }
 
@@ -111,15 +144,9 @@ void Advance::step(double dt) {
     });
     const double* next = next_.data();
     for_ranges(band_.size(), [&](std::size_t begin, std::size_t end) {
-        for (std::size_t c = begin; c < end; ++c) {
-            const RowPair& row = row_[c];
-            if (row.row < 0) continue;
-            const RateWindow& window = element_window_[element_[c]];
-            if (!tables_.moves(row, window)) continue;
-            Speed speed;
-            const double second = change(slopes(next, c), row, window, speed, even_[c]);
+        sweep(next, begin, end, [&](std::size_t c, double second, const Speed&) {
             band_.phi[c] += 0.5 * dt * (slope_[c] + second);
-        }
+        });
     });
     for_ranges(layered_.size(), [&](std::size_t begin, std::size_t end) {
         for (std::size_t l = begin; l < end; ++l) {

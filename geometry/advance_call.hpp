@@ -65,6 +65,8 @@ private:
     double change(const Slopes&, const RowPair&, const RateWindow&, Speed&,
                   bool even = false) const;
     void blend(RowPair&, const BetweenCentres&) const;
+    template <class Take>
+    void sweep(const double* phi, std::size_t begin, std::size_t end, const Take& take) const;
     double layered_change(const Slopes&, const Layers&, double dt, bool even) const;
     Speed first_stage();
     void find_layers(LayeredCell&, Speed&);

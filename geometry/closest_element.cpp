@@ -49,14 +49,14 @@ struct Candidate {
 struct alignas(64) Plate {
     Vec3 centre, normal; ///< [nm] where it has moved to; unit
     double size;         ///< [nm] reach from the centre: half a segment, more than a quad's disc
-    double disc;         ///< [nm^2] square of the radius of a quad's disc
+    double radius;       ///< [nm] of a quad's disc
 };
 
 /// From the nearest point of the disc that stands for a quad, to a point `apart` from its centre.
 Vec3 from_disc(const Vec3& apart, const Plate& plate) {
     const Vec3 across = apart - plate.normal * apart.dot(plate.normal);
-    const double square = across.dot(across);
-    return square <= plate.disc ? apart - across : apart - across * std::sqrt(plate.disc / square);
+    const double square = across.dot(across), most = plate.radius * plate.radius;
+    return square <= most ? apart - across : apart - across * std::sqrt(most / square);
 }
 
 class Search {
@@ -93,6 +93,15 @@ private:
         const Vec3 shift = shift_of(e);
         return p - (nearest_point(surface_, true, e, p - shift) + shift);
     }
+    /// Whether a quad is surely farther away than `best`, by a cheaper measure than its distance.
+    bool loses(double square, const Vec3& apart, const Plate& plate, double best) const {
+        if (domain_.extruded()) return false;
+        const double along = apart.dot(plate.normal), across = square - along * along;
+        const double beyond = std::sqrt(std::max(0.0, across)) - plate.radius;
+        const double least = along * along + (beyond > 0 ? beyond * beyond : 0.0);
+        const double limit = best + 2 * tolerance_;
+        return least > limit * limit * (1 + 1e-9);
+    }
     void offer(const Vec3& p, int e, Candidate& best) const;
     double facing(const Vec3& away, double distance, int e) const;
     bool wins_tie(const Vec3& away, double distance, int e, const Candidate& best) const;
@@ -119,7 +128,7 @@ void Search::pack() {
             const double area = surface_.area[e];
             const double size = domain_.extruded() ? 0.5 * area : std::sqrt(area);
             plates_[e] = {surface_.centre[e] + shift_of(static_cast<int>(e)), surface_.normal[e],
-                          size, size * size * (1 / pi)};
+                          size, size * std::sqrt(1 / pi)};
         }
     });
 }
@@ -170,7 +179,8 @@ void Search::offer(const Vec3& p, int e, Candidate& best) const {
     const Vec3 local = image(p, plate.centre);
     const double least = best.distance + plate.size + tolerance_;
     const Vec3 apart = local - plate.centre;
-    if (apart.dot(apart) > least * least) return;
+    const double square = apart.dot(apart);
+    if (square > least * least || loses(square, apart, plate, best.distance)) return;
     const Vec3 away = domain_.extruded() ? from_segment(local, e) : from_disc(apart, plate);
     const double distance = away.length();
     if (best.element >= 0 && !(distance < best.distance - tolerance_)) {

@@ -60,7 +60,8 @@ Surface extract_surface(const Front&);
 struct AdvanceLimits {
     double time = 0;       ///< [s] largest time to advance
     double max_move = 0.5; ///< [cells] stop when any point has moved this far (arrivals are stale)
-    double max_share = 0.45; ///< Courant number of one sub-step
+    /// Courant number of one sub-step at edges; where the front is smooth twice this will do.
+    double max_share = 0.45;
 };
 
 struct AdvanceReport {

@@ -109,7 +109,6 @@ Tilt RateTables::tilt(double horizontal, double vertical, double& length) const 
         t.angle = std::copysign(mark.angle + short_arcsine(beyond), horizontal);
         t.sine = std::copysign(t.sine, horizontal);
     }
-    t.segment = segment(t.angle);
     return t;
 }
 
@@ -157,6 +156,42 @@ WaveSpeed RateTables::wave_speed(int row, const Tilt& low, const Tilt& high,
     return out;
 }
 
+static WaveSpeed most(const WaveSpeed& a, const WaveSpeed& b) {
+    return {std::max(a.horizontal, b.horizontal), std::max(a.vertical, b.vertical)};
+}
+
+WaveSpeed RateTables::wave_speed_of_cone(int row, const Tilt& low, const Tilt& high,
+                                         const RateWindow& window) const {
+    const int s = low.segment, last = static_cast<int>(rates_.angles.size()) - 2;
+    const double* a = rates_.angles.data() + s;
+    // Most cones end in the segment of their middle or the next one. Which of them is a toss-up, so
+    // all three are looked at and what does not count is multiplied by 0: no branch to guess.
+    if (s < 1 || s >= last || low.angle < a[-1] || high.angle > a[2])
+        return wave_speed(row, low, high, window);
+    const double* v = values(row, s - 1, s + 1, window) + 1;
+    const double* w = inverse_width_.data() + s;
+    const double slope[3] = {(v[0] - v[-1]) * w[-1], (v[1] - v[0]) * w[0], (v[2] - v[1]) * w[1]};
+    WaveSpeed out;
+    const auto take = [&out](double rate, double by_tilt, double sine, double cosine,
+                             double count) {
+        out.horizontal =
+            std::max(out.horizontal, count * std::fabs(rate * sine + by_tilt * cosine));
+        out.vertical = std::max(out.vertical, count * std::fabs(rate * cosine - by_tilt * sine));
+    };
+    const int below = low.angle<a[0], above = high.angle> a[1];
+    const double from = slope[1 - below], to = slope[1 + above];
+    take(v[-below] + from * (low.angle - a[-below]), from, low.sine, low.cosine, 1);
+    take(v[above] + to * (high.angle - a[above]), to, high.sine, high.cosine, 1);
+    take(v[0], slope[0], sine_[s], cosine_[s], below);
+    take(v[0], slope[1], sine_[s], cosine_[s], below);
+    take(v[1], slope[1], sine_[s + 1], cosine_[s + 1], above);
+    take(v[1], slope[2], sine_[s + 1], cosine_[s + 1], above);
+    for (const double axis : {-0.5, 0.0, 0.5})
+        if (low.angle < axis * pi && high.angle > axis * pi)
+            return most(out, wave_speed(row, low, high, window));
+    return out;
+}
+
 namespace {
 
 /// The box of slopes of a cell in polar form: horizontal magnitude against z.
@@ -192,10 +227,6 @@ Tilt turned(const Tilt& t, double by) {
     return {t.angle + by, t.sine * c + t.cosine * by, t.cosine * c - t.sine * by, t.segment};
 }
 
-WaveSpeed most(const WaveSpeed& a, const WaveSpeed& b) {
-    return {std::max(a.horizontal, b.horizontal), std::max(a.vertical, b.vertical)};
-}
-
 /// Wave speed over all tilts a box of slopes holds.
 WaveSpeed over_box(const RateTables& tables, int row, bool extruded, const Box& b, const Tilt& mean,
                    const RateWindow& window) {
@@ -208,7 +239,8 @@ WaveSpeed over_box(const RateTables& tables, int row, bool extruded, const Box& 
         // The mean slopes lie in the box, so a cone about them as wide as its diagonal holds it.
         const double spread = 1.1 * std::sqrt(square / middle);
         const Tilt low = turned(mean, -spread), up = turned(mean, spread);
-        if (low.angle >= lowest && up.angle <= pi) return tables.wave_speed(row, low, up, window);
+        if (low.angle >= lowest && up.angle <= pi)
+            return tables.wave_speed_of_cone(row, low, up, window);
     }
     const Tilt full_low{lowest, 0, extruded ? -1.0 : 1.0, -1}, full_high{pi, 0, -1, -1};
     const bool holds_origin = b.h_low <= 0 && b.h_high >= 0 && b.z_low <= 0 && b.z_high >= 0;
@@ -284,17 +316,36 @@ double upwind_steepness(const Slopes& s, bool recedes, double& waves) {
 
 double lax_friedrichs(const RateTables& tables, const RowPair& rows, const RateWindow& window,
                       bool extruded, const Slopes& s, Speed& speed) {
-    const double gx = s.mean(0), gy = s.mean(1), gz = s.mean(2);
-    const double across = extruded ? gx : std::sqrt(gx * gx + gy * gy);
-    double length;
-    const Tilt mean = tables.tilt(across, gz, length);
-    speed.rate = tables.rate(rows, mean, window);
-    const std::array<double, 3> a = dissipation(tables, rows, window, extruded, s, mean);
-    speed.waves = a[0] + a[1] + a[2];
-    double sum = speed.rate * length;
-    for (int axis = 0; axis < 3; ++axis)
-        sum += 0.5 * a[axis] * (s.plus[axis] - s.minus[axis]);
-    return sum;
+    FluxCell cell;
+    cell.rows = &rows;
+    cell.window = &window;
+    cell.slopes = s;
+    lax_friedrichs(tables, extruded, &cell, 1);
+    speed = cell.speed;
+    return cell.change;
+}
+
+void lax_friedrichs(const RateTables& tables, bool extruded, FluxCell* cells, int count) {
+    for (int n = 0; n < count; ++n) {
+        FluxCell& c = cells[n];
+        const double gx = c.slopes.mean(0), gy = c.slopes.mean(1);
+        const double across = extruded ? gx : std::sqrt(gx * gx + gy * gy);
+        c.mean = tables.tilt(across, c.slopes.mean(2), c.length);
+    }
+    for (int n = 0; n < count; ++n)
+        tables.find_segment(cells[n].mean);
+    for (int n = 0; n < count; ++n) {
+        FluxCell& c = cells[n];
+        const Slopes& s = c.slopes;
+        c.speed.rate = tables.rate(*c.rows, c.mean, *c.window);
+        const std::array<double, 3> a =
+            dissipation(tables, *c.rows, *c.window, extruded, s, c.mean);
+        c.speed.waves = a[0] + a[1] + a[2];
+        c.speed.smooth = smooth(s);
+        c.change = c.speed.rate * c.length;
+        for (int axis = 0; axis < 3; ++axis)
+            c.change += 0.5 * a[axis] * (s.plus[axis] - s.minus[axis]);
+    }
 }
 
 } // namespace rille::geometry

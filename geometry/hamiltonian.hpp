@@ -56,8 +56,10 @@ public:
         const double own = rate(pair.row, angle);
         return pair.share > 0 ? own + pair.share * (rate(pair.other, angle) - own) : own;
     }
-    /// The tilt of a slope, as tilt_of, and its length; without calling an arc function.
+    /// The tilt of a slope, as tilt_of, and its length; without calling an arc function. Its
+    /// segment is still to be found.
     Tilt tilt(double horizontal, double vertical, double& length) const;
+    void find_segment(Tilt& t) const { t.segment = segment(t.angle); }
     /// Part of `row` about `angle`.
     RateWindow window(int row, double angle) const;
     /// Rate at a tilt that came from `tilt`. The window is used for what it holds; the result is
@@ -87,6 +89,9 @@ public:
     }
     /// Over tilts from `low` to `high`, low.angle <= high.angle, both within the table.
     WaveSpeed wave_speed(int row, const Tilt& low, const Tilt& high, const RateWindow&) const;
+    /// The same for a narrow cone about a tilt of `segment`: low and high come from it.
+    WaveSpeed wave_speed_of_cone(int row, const Tilt& low, const Tilt& high,
+                                 const RateWindow&) const;
 
 private:
     int segment(double angle) const;
@@ -114,13 +119,29 @@ private:
 double upwind_steepness(const Slopes&, bool recedes, double& waves);
 
 struct Speed {
-    double waves = 0; ///< sum of |dH/dp| along the axes [nm/s]
-    double rate = 0;  ///< of the front along its normal [nm/s]
+    double waves = 0;    ///< sum of |dH/dp| along the axes [nm/s]
+    bool smooth = false; ///< no edge passes the cell
+    double rate = 0;     ///< of the front along its normal [nm/s]
 };
 
 /// dphi/dt [nm/s] of a cell by local Lax-Friedrichs: R(n) |grad phi| at the mean slopes plus, along
 /// each axis, half the largest |dH/dp| over the box of slopes times their difference.
 double lax_friedrichs(const RateTables&, const RowPair&, const RateWindow&, bool extruded,
                       const Slopes&, Speed&);
+
+/// A cell with what `lax_friedrichs` is given and what it returns.
+struct FluxCell {
+    std::size_t cell = 0;
+    const RowPair* rows = nullptr;
+    const RateWindow* window = nullptr;
+    Slopes slopes;
+    Tilt mean;         ///< of the mean slopes, found on the way
+    double length = 0; ///< of the mean slopes
+    Speed speed;
+    double change = 0; ///< dphi/dt [nm/s]
+};
+/// The same for several cells, step by step: one cell is a long chain of operations that wait for
+/// each other, and the chains of several run side by side.
+void lax_friedrichs(const RateTables&, bool extruded, FluxCell* cells, int count);
 
 } // namespace rille::geometry

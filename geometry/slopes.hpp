@@ -22,6 +22,17 @@ inline double minmod(double a, double b) {
     return std::max(0.0, std::min(a, b)) + std::min(0.0, std::max(a, b));
 }
 
+/// Whether the slopes of both sides agree to about 6 degrees: no edge passes the cell.
+inline bool smooth(const Slopes& s) {
+    double apart = 0, steep = 0;
+    for (int a = 0; a < 3; ++a) {
+        const double d = s.plus[a] - s.minus[a], m = s.mean(a);
+        apart += d * d;
+        steep += m * m;
+    }
+    return apart < 0.01 * steep;
+}
+
 inline void slopes_along(const Band& band, const double* phi, std::size_t cell,
                          double inverse_spacing, int axis, unsigned unseen, Slopes& out) {
     const int c = static_cast<int>(cell);
