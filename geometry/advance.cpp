@@ -17,13 +17,15 @@ constexpr double edge_margin = 1.4; ///< [cells] the contour may come nearer the
 } // namespace
 
 /// dphi/dt = R(n) |grad phi| + sum of a (slope+ - slope-) / 2: the solid (phi < 0) recedes at R.
-/// Where R is the same for all normals Godunov's flux needs no dissipation.
-double Advance::change(const Slopes& s, const RowPair& row, Speed& speed) const {
+/// Where R is the same for all normals Godunov's flux needs no dissipation. In the fan round a
+/// corner phi is the distance to a point, which no difference over a cell can follow; but its slope
+/// is 1.
+double Advance::change(const Slopes& s, const RowPair& row, bool fan, Speed& speed) const {
     if (tables_.constant(row)) {
         speed.rate = tables_.rate(row, 0);
         const double steep = upwind_steepness(s, speed.rate > 0, speed.waves);
         speed.waves *= std::fabs(speed.rate);
-        return speed.rate * steep;
+        return fan ? speed.rate : speed.rate * steep;
     }
     const double gx = s.mean(0), gy = s.mean(1), gz = s.mean(2);
     const Tilt mean = tilt_of(extruded_, gx, gy, gz);
@@ -37,7 +39,7 @@ double Advance::change(const Slopes& s, const RowPair& row, Speed& speed) const 
 }
 
 /// The same at the mean rate over `dt` through layers: each acts for its share of the time.
-double Advance::layered_change(const Slopes& s, const Layers& layers, double dt) const {
+double Advance::layered_change(const Slopes& s, const Layers& layers, bool fan, double dt) const {
     std::array<double, Layers::capacity> share;
     const double angle = tilt_of(extruded_, s.mean(0), s.mean(1), s.mean(2)).angle;
     walk(tables_, layers, angle, dt, share);
@@ -45,7 +47,7 @@ double Advance::layered_change(const Slopes& s, const Layers& layers, double dt)
     for (int k = 0; k < layers.count; ++k) {
         Speed speed;
         if (share[k] > 0 && layers.row[k].row >= 0)
-            sum += share[k] * change(s, layers.row[k], speed);
+            sum += share[k] * change(s, layers.row[k], fan, speed);
     }
     return sum;
 }
@@ -55,7 +57,13 @@ double Advance::layered_change(const Slopes& s, const Layers& layers, double dt)
 /// the front's own plane stands in for it. So it does behind an interface that the front runs along
 /// if the rate depends on the normal: a vertical wall must not be seen tilted by what is below it.
 Slopes Advance::special_slopes(const double* phi, const LayeredCell& at) const {
-    Slopes s = slopes(phi, at.cell, at.unseen | at.beside);
+    Slopes s =
+        slopes(phi, at.cell, (at.directional ? at.unseen & direct_sides : at.unseen) | at.beside,
+               at.directional);
+    for (int side = 4; side < 6 && !at.directional; ++side)
+        if (at.unseen >> side & 1)
+            mirror_slopes(band_, phi, at.cell, 1 / h_, side, finder_.gap(at.cell, side),
+                          Limiter::isotropic, s);
     const unsigned plane = at.beside | (at.directional ? at.unseen : 0u);
     for (int side = 0; side < 6; ++side) {
         if (!(plane >> side & 1)) continue;
@@ -75,7 +83,7 @@ Speed Advance::first_stage() {
             slope_[c] = 0;
             if (!tables_.moves(row)) continue;
             Speed speed;
-            slope_[c] = change(slopes(phi, c), row, speed);
+            slope_[c] = change(slopes(phi, c, row), row, fan_[c], speed);
             waves = std::max(waves, speed.waves);
             if (std::fabs(phi[c]) < h_) fastest = std::max(fastest, std::fabs(speed.rate));
         }
@@ -101,7 +109,7 @@ void Advance::step(double dt) {
         for (std::size_t l = begin; l < end; ++l) {
             const std::size_t c = layered_[l].cell;
             slope_[c] = layered_change(special_slopes(band_.phi.data(), layered_[l]),
-                                       layered_[l].layers, dt);
+                                       layered_[l].layers, fan_[c], dt);
         }
     });
     for_ranges(band_.size(), [&](std::size_t begin, std::size_t end) {
@@ -114,7 +122,7 @@ void Advance::step(double dt) {
             const RowPair& row = row_[c];
             if (!tables_.moves(row)) continue;
             Speed speed;
-            const double second = change(slopes(next, c), row, speed);
+            const double second = change(slopes(next, c, row), row, fan_[c], speed);
             band_.phi[c] += 0.5 * dt * (slope_[c] + second);
         }
     });
@@ -122,7 +130,7 @@ void Advance::step(double dt) {
         for (std::size_t l = begin; l < end; ++l) {
             const std::size_t c = layered_[l].cell;
             const LayeredCell& at = layered_[l];
-            const double second = layered_change(special_slopes(next, at), at.layers, dt);
+            const double second = layered_change(special_slopes(next, at), at.layers, fan_[c], dt);
             const double time = report_.time + dt - time_of_refresh_;
             band_.phi[c] = std::min(band_.phi[c] + 0.5 * dt * (slope_[c] + second),
                                     at.wall + at.wall_rate * time);
