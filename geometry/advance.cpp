@@ -12,7 +12,7 @@ namespace rille::geometry {
 
 namespace {
 
-constexpr double unresolved = 0.02; ///< steepness off by more comes from a bend within a cell
+constexpr double unresolved = 0.02;  ///< steepness off by more comes from a bend within a cell
 constexpr double most_move = 0.5;    ///< [cells] of one sub-step; less than layer_reach
 constexpr double smooth_share = 0.9; ///< Courant number where no edge is near: stable below 1
 constexpr double edge_margin = 1.4;  ///< [cells] the contour may come nearer the edge of the band
@@ -20,19 +20,21 @@ constexpr double edge_margin = 1.4;  ///< [cells] the contour may come nearer th
 } // namespace
 
 /// dphi/dt = R(n) |grad phi| + sum of a (slope+ - slope-) / 2: the solid (phi < 0) recedes at R.
-/// Where R is the same for all normals Godunov's flux needs no dissipation.
-double Advance::change(const Slopes& s, const RowPair& row, const RateWindow& window, Speed& speed,
-                       bool even) const {
+/// Where R is the same for all normals Godunov's flux needs no dissipation. In the fan round a
+/// corner phi is the distance to a point, which no difference over a cell can follow; but its slope
+/// is 1.
+double Advance::change(const Slopes& s, const RowPair& row, const RateWindow& window, bool fan,
+                       Speed& speed) const {
     if (tables_.constant(row, window)) {
         speed.rate = tables_.rate(row, 0);
         double steep = upwind_steepness(s, speed.rate > 0, speed.waves);
-        if (even) {
+        if (fan && !extruded_) { // there a corner may meet a smooth face
             double waves;
             const double down = upwind_steepness(s, speed.rate <= 0, waves);
             if ((steep - 1) * (down - 1) <= 0 && std::fabs(steep - 1) > unresolved) steep = 1;
         }
         speed.waves *= std::fabs(speed.rate);
-        return speed.rate * steep;
+        return fan && extruded_ ? speed.rate : speed.rate * steep;
     }
     return lax_friedrichs(tables_, row, window, extruded_, s, speed);
 }
@@ -55,8 +57,8 @@ void Advance::sweep(const double* phi, std::size_t begin, std::size_t end, const
         if (!tables_.moves(row, window)) continue;
         if (tables_.constant(row, window)) {
             Speed speed;
-            const Slopes s = slopes(phi, c);
-            const double rate = change(s, row, window, speed, even_[c]);
+            const Slopes s = slopes(phi, c, 0, false);
+            const double rate = change(s, row, window, fan_[c], speed);
             speed.smooth = smooth(s);
             take(c, rate, speed);
             continue;
@@ -65,14 +67,14 @@ void Advance::sweep(const double* phi, std::size_t begin, std::size_t end, const
         next.cell = c;
         next.rows = &row;
         next.window = &window;
-        next.slopes = slopes(phi, c);
+        next.slopes = slopes(phi, c, 0, true);
         if (count == cells.size()) finish();
     }
     finish();
 }
 
 /// The same at the mean rate over `dt` through layers: each acts for its share of the time.
-double Advance::layered_change(const Slopes& s, const Layers& layers, double dt, bool even) const {
+double Advance::layered_change(const Slopes& s, const Layers& layers, bool fan, double dt) const {
     std::array<double, Layers::capacity> share;
     const double angle = tilt_of(extruded_, s.mean(0), s.mean(1), s.mean(2)).angle;
     walk(tables_, layers, angle, dt, share);
@@ -80,7 +82,7 @@ double Advance::layered_change(const Slopes& s, const Layers& layers, double dt,
     for (int k = 0; k < layers.count; ++k) {
         Speed speed;
         if (share[k] > 0 && layers.row[k].row >= 0)
-            sum += share[k] * change(s, layers.row[k], {}, speed, even);
+            sum += share[k] * change(s, layers.row[k], {}, fan, speed);
     }
     return sum;
 }
@@ -90,7 +92,13 @@ double Advance::layered_change(const Slopes& s, const Layers& layers, double dt,
 /// the front's own plane stands in for it. So it does behind an interface that the front runs along
 /// if the rate depends on the normal: a vertical wall must not be seen tilted by what is below it.
 Slopes Advance::special_slopes(const double* phi, const LayeredCell& at) const {
-    Slopes s = slopes(phi, at.cell, at.unseen | at.beside);
+    Slopes s =
+        slopes(phi, at.cell, (at.directional ? at.unseen & direct_sides : at.unseen) | at.beside,
+               at.directional);
+    for (int side = 4; side < 6 && !at.directional; ++side)
+        if (at.unseen >> side & 1)
+            mirror_slopes(band_, phi, at.cell, 1 / h_, side, finder_.gap(at.cell, side),
+                          Limiter::isotropic, s);
     const unsigned plane = at.beside | (at.directional ? at.unseen : 0u);
     for (int side = 0; side < 6; ++side) {
         if (!(plane >> side & 1)) continue;
@@ -135,7 +143,7 @@ void Advance::step(double dt) {
         for (std::size_t l = begin; l < end; ++l) {
             const std::size_t c = layered_[l].cell;
             slope_[c] = layered_change(special_slopes(band_.phi.data(), layered_[l]),
-                                       layered_[l].layers, dt, even_[c]);
+                                       layered_[l].layers, fan_[c], dt);
         }
     });
     for_ranges(band_.size(), [&](std::size_t begin, std::size_t end) {
@@ -152,7 +160,7 @@ void Advance::step(double dt) {
         for (std::size_t l = begin; l < end; ++l) {
             const std::size_t c = layered_[l].cell;
             const LayeredCell& at = layered_[l];
-            const double second = layered_change(special_slopes(next, at), at.layers, dt, even_[c]);
+            const double second = layered_change(special_slopes(next, at), at.layers, fan_[c], dt);
             const double time = report_.time + dt - time_of_refresh_;
             band_.phi[c] = std::min(band_.phi[c] + 0.5 * dt * (slope_[c] + second),
                                     at.wall + at.wall_rate * time);

@@ -13,9 +13,11 @@
 
 namespace rille::geometry {
 
-constexpr int layered_row = -2;       ///< marks cells whose row depends on where the front is
-constexpr double layer_reach = 0.6;   ///< [cells] more than any sub-step moves
-constexpr double refresh_move = 0.75; ///< [cells] nearest elements and band hold for this far
+constexpr int layered_row = -2;         ///< marks cells whose row depends on where the front is
+constexpr double layer_reach = 0.6;     ///< [cells] more than any sub-step moves
+constexpr double refresh_move = 0.75;   ///< [cells] nearest elements and band hold for this far
+constexpr unsigned direct_sides = 0x3f; ///< of LayeredCell::unseen: without the second neighbours
+constexpr double fan_cosine = 0.985; ///< 10 degrees: the front turns by more at the foot of a fan
 constexpr double resting_share =
     0.5; ///< a wall rests if slower than this share of the front beside it
 
@@ -26,7 +28,8 @@ struct LayeredCell {
     Foot foot;
     double phi0 = 0;
     unsigned resting = 0; ///< sides (bits) whose neighbour belongs to a wall that rests
-    unsigned unseen = 0;  ///< sides behind an interface that the front runs along
+    unsigned unseen = 0;  ///< sides behind an interface that the front runs along (6 + s: the
+                          ///< second neighbour on side s)
     unsigned beside = 0;  ///< sides whose neighbour is nearer to a resting wall than to this front
     double wall = std::numeric_limits<double>::infinity(); ///< [nm] bound of phi at a resting wall
     double wall_rate = 0;
@@ -55,19 +58,20 @@ private:
     void classify_elements();
     BetweenCentres place_of(std::size_t c, const ClosestElements&) const;
     unsigned resting_sides(std::size_t c) const;
+    bool in_fan(std::size_t c, const ClosestElements&) const;
     void find_wall(LayeredCell&) const;
     Slopes special_slopes(const double* phi, const LayeredCell&) const;
-    Slopes slopes(const double* phi, std::size_t c, unsigned unseen = 0) const {
-        return extruded_ ? slopes_2d(band_, phi, c, 1 / h_, unseen)
-                         : slopes_3d(band_, phi, c, 1 / h_, unseen);
+    Slopes slopes(const double* phi, std::size_t c, unsigned unseen, bool directional) const {
+        const Limiter limiter = directional ? Limiter::directional : Limiter::isotropic;
+        return extruded_ ? slopes_2d(band_, phi, c, 1 / h_, unseen, limiter)
+                         : slopes_3d(band_, phi, c, 1 / h_, unseen, limiter);
     }
     void find_even_cells(const ClosestElements&);
-    double change(const Slopes&, const RowPair&, const RateWindow&, Speed&,
-                  bool even = false) const;
+    double change(const Slopes&, const RowPair&, const RateWindow&, bool fan, Speed&) const;
     void blend(RowPair&, const BetweenCentres&) const;
     template <class Take>
     void sweep(const double* phi, std::size_t begin, std::size_t end, const Take& take) const;
-    double layered_change(const Slopes&, const Layers&, double dt, bool even) const;
+    double layered_change(const Slopes&, const Layers&, bool fan, double dt) const;
     Speed first_stage();
     void find_layers(LayeredCell&, Speed&);
     double choose_step(const Speed&) const;
@@ -91,7 +95,8 @@ private:
     double time_of_refresh_ = 0;     ///< [s]
     std::vector<int> element_;
     std::vector<RowPair> row_;
-    std::vector<char> even_;           ///< cells that no faster front beside them will reach
+    /// extruded: whether the nearest point is a sharp corner; full: see find_even_cells.
+    std::vector<char> fan_;
     std::vector<double> slope_, next_; ///< dphi/dt at the first stage; phi after it
     std::vector<LayeredCell> layered_;
     std::vector<int> layered_elements_;

@@ -38,7 +38,6 @@ void Advance::refresh() {
 /// full: whether phi of a cell is the time at which the front passes it, but for the rate: where
 /// the rate does not depend on the normal and no neighbour has a faster one to spread from.
 void Advance::find_even_cells(const ClosestElements& closest) {
-    even_.assign(band_.size(), 0);
     if (extruded_) return;
     std::vector<double> rate(band_.size(), 0.0); // NaN where it depends on the normal
     for_ranges(band_.size(), [&](std::size_t begin, std::size_t end) {
@@ -56,8 +55,8 @@ void Advance::find_even_cells(const ClosestElements& closest) {
     for_ranges(band_.size(), [&](std::size_t begin, std::size_t end) {
         for (std::size_t c = begin; c < end; ++c) {
             const double most = even_share * std::fabs(rate[c]);
-            even_[c] = std::all_of(band_.neighbour[c].begin(), band_.neighbour[c].end(),
-                                   [&](int n) { return n < 0 || std::fabs(rate[n]) <= most; });
+            fan_[c] = std::all_of(band_.neighbour[c].begin(), band_.neighbour[c].end(),
+                                  [&](int n) { return n < 0 || std::fabs(rate[n]) <= most; });
         }
     });
 }
@@ -66,6 +65,7 @@ void Advance::classify_cells(const ClosestElements& closest) {
     const double reach = (refresh_move + 2 * layer_reach + 0.5) * h_;
     element_ = closest.element;
     row_.assign(band_.size(), {});
+    fan_.assign(band_.size(), 0);
     for_ranges(band_.size(), [&](std::size_t begin, std::size_t end) {
         for (std::size_t c = begin; c < end; ++c) {
             const int e = element_[c];
@@ -78,6 +78,7 @@ void Advance::classify_cells(const ClosestElements& closest) {
             else
                 row_[c].row = finder_.row_below(e, {closest.foot[c], -surface_.normal[e], false});
             blend(row_[c], place_of(c, closest));
+            fan_[c] = in_fan(c, closest);
         }
     });
     layered_.clear();
@@ -98,6 +99,17 @@ void Advance::classify_cells(const ClosestElements& closest) {
 /// Where on the surface, as it was when the rates were found, the foot of a cell lies.
 BetweenCentres Advance::place_of(std::size_t c, const ClosestElements& closest) const {
     return between_centres(band_.domain, surface_, closest.element[c], closest.foot[c]);
+}
+
+/// Whether the nearest point of the surface is a corner that the cell sees from well beyond both
+/// sides.
+bool Advance::in_fan(std::size_t c, const ClosestElements& closest) const {
+    if (!extruded_) return false;
+    const Band::Cell& cell = band_.cells[c];
+    const Vec3& normal = surface_.normal[closest.element[c]];
+    const Foot foot = foot_of(band_.domain.node(cell.i, cell.j, cell.k), band_.phi[c],
+                              closest.foot[c], normal, h_);
+    return foot.corner && -foot.inward.dot(normal) < fan_cosine;
 }
 
 /// Takes in the row that the neighbour has for the same material.
@@ -185,7 +197,7 @@ void Advance::find_layers(LayeredCell& at, Speed& most) {
     const std::size_t c = at.cell;
     const int e = element_[c];
     const double* phi = band_.phi.data();
-    Slopes s = slopes(phi, c);
+    Slopes s = slopes(phi, c, 0, false);
     const auto length = [&] {
         return std::sqrt(s.mean(0) * s.mean(0) + s.mean(1) * s.mean(1) + s.mean(2) * s.mean(2));
     };
@@ -208,7 +220,7 @@ void Advance::find_layers(LayeredCell& at, Speed& most) {
     for (int k = 0; k < at.layers.count; ++k) {
         Speed speed;
         blend(at.layers.row[k], at.place);
-        if (at.layers.row[k].row >= 0) change(s, at.layers.row[k], {}, speed);
+        if (at.layers.row[k].row >= 0) change(s, at.layers.row[k], {}, false, speed);
         most.waves = std::max(most.waves, speed.waves);
         if (std::fabs(phi[c]) < h_) most.rate = std::max(most.rate, std::fabs(speed.rate));
     }

@@ -177,8 +177,20 @@ unsigned LayerFinder::slow_sides(std::size_t cell, const double* phi, int elemen
 unsigned LayerFinder::unseen_sides(std::size_t cell, const double* phi, int element,
                                    const Foot& foot, double angle) const {
     const int own = stack_.film_at((band_.cells[cell].k + 0.5) * band_.domain.spacing);
-    return film_inside(past_sliver(element, foot)) == own ? slow_sides(cell, phi, element, angle)
-                                                          : 0;
+    if (film_inside(past_sliver(element, foot)) != own) return 0;
+    unsigned sides = slow_sides(cell, phi, element, angle);
+    for (int side = 4; side < 6; ++side) {
+        const int next = band_.neighbour[cell][side];
+        if (next >= 0 && (slow_sides(next, phi, element, angle) >> side & 1))
+            sides |= 1u << (6 + side);
+    }
+    return sides;
+}
+
+double LayerFinder::gap(std::size_t cell, int side) const {
+    const double z = (band_.cells[cell].k + 0.5) * band_.domain.spacing;
+    const Film& own = stack_.films()[stack_.film_at(z)];
+    return side == 4 ? z - own.bottom : own.top - z;
 }
 
 bool LayerFinder::pinned(std::size_t cell, const double* phi, int element, double angle) const {

