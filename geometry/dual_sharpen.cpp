@@ -18,6 +18,7 @@ constexpr double bent = 0.35;          ///< [rad] turn at a quad that halves its
 constexpr double turned_over = 0.2;    ///< cosine of an element that lies the wrong way
 constexpr double laid_together = -0.8; ///< cosine between two elements that meet back to back
 constexpr double folded_area = 0.02;   ///< [cells^2] twice the area of an element that matters
+constexpr double blunted = 0.35;       ///< [cells]
 constexpr double reach = 4.2;          ///< [cells] faces are fitted within
 
 /// What a search over the mesh has come by: the vertex it started from, for each vertex and quad.
@@ -239,6 +240,8 @@ private:
         std::vector<FaceSample> samples = samples_near(v, seen);
         LocalSolid solid;
         if (!find_faces(samples, solid)) return here;
+        // The mean of the crossings lies this near to one of two faces, or they are not there.
+        if (solid.count == 2 && std::fabs(solid.value(Vec3(0))) > blunted) return here;
         const CrossedCell cell = crossed_cell(band_, mesh_, v);
         bool touched[3] = {};
         const Vec3 start = recross(cell, here, h_, solid, touched);

@@ -1,4 +1,5 @@
 // SPDX-License-Identifier: Apache-2.0
+#include "geometry/closest_element.hpp"
 #include "geometry/extract_surface.hpp"
 #include "tests/support/check_surface.hpp"
 #include "tests/support/make_band.hpp"
@@ -97,6 +98,62 @@ TEST_CASE("cubes and vias keep their edges and corners", "[surface]") {
             const double area = 8 * (half.x * half.y + half.y * half.z + half.z * half.x);
             CHECK(total_area(s) == Approx(area).epsilon(0.005));
         }
+}
+
+TEST_CASE("edges of narrow round holes are sharp", "[surface]") {
+    // Oracle: a round hole through a plate: foot and rim are circles of its radius.
+    // Source: derived here. Tolerance: 0.06 cell, every vertex and points on both circles; the same
+    // hole 0.2 cell wider must fail.
+    const double depth = 8;
+    for (const double radius : {5.0, 8.0})
+        for (const double shift : {0.0, 0.3}) {
+            const int cells = 2 * static_cast<int>(radius + 7);
+            const Domain d = full(cells, cells, 1.0, Sides::periodic);
+            const Vec3 at(shift, 0.6 * shift, shift);
+            const auto hole = [&](const Vec3& p, double r) {
+                const double in = r - std::hypot(p.x - at.x, p.y - at.y), z = p.z - at.z;
+                if (z > depth) return in < 0 ? z - depth : std::hypot(in, z - depth);
+                if (in >= 0 && z >= 0) return std::min(in, z);
+                if (in < 0 && z >= 0) return -std::min(-in, depth - z);
+                return -std::min(in > 0 ? -z : std::hypot(in, z), depth - z);
+            };
+            const Surface s = extract_surface(make_band(
+                d, [&](const Vec3& p) { return hole(p, radius); }, 0, depth + 1));
+            CAPTURE(radius, shift);
+            CHECK(loose_edges(s, d) == 0);
+            CHECK(largest_distance(s, [&](const Vec3& p) { return hole(p, radius); }) < 0.06);
+            CHECK(largest_distance(s, [&](const Vec3& p) { return hole(p, radius + 0.2); }) > 0.06);
+            double farthest = 0;
+            for (int a = 0; a < 100; ++a)
+                for (const double z : {0.0, depth}) {
+                    const double turn = 2 * M_PI * a / 100;
+                    const Vec3 p = at + Vec3(radius * std::cos(turn), radius * std::sin(turn), z);
+                    double nearest = 1e9;
+                    for (std::size_t e = 0; e < s.size(); ++e)
+                        if ((s.centre[e] - p).length2() < 6)
+                            nearest = std::min(
+                                nearest, (exact_nearest_point(s, false, static_cast<int>(e), p) - p)
+                                             .length());
+                    farthest = std::max(farthest, nearest);
+                }
+            CHECK(farthest < 0.06);
+        }
+}
+
+TEST_CASE("round surfaces get no edges", "[surface]") {
+    // Oracle: balls and ball-shaped voids of a few cells. Source: derived here.
+    // Tolerance: 0.15 cell (an edge put where there is none stands off by up to a cell).
+    for (const double radius : {2.5, 3.0, 4.0, 6.0})
+        for (const double sign : {1.0, -1.0})
+            for (const double shift : {0.0, 0.3}) {
+                const Domain d = full(20, 20, 1.0, Sides::periodic);
+                const auto ball = [&](const Vec3& p) {
+                    return sign * ((p - Vec3(shift, 0.7 * shift, 0.2 * shift)).length() - radius);
+                };
+                CAPTURE(radius, sign, shift);
+                CHECK(largest_distance(extract_surface(make_band(d, ball, -radius, radius)), ball) <
+                      0.15);
+            }
 }
 
 TEST_CASE("full surfaces cover one period whatever the sides", "[surface]") {

@@ -96,7 +96,8 @@ TEST_CASE("a vertical beam etches a via straight down", "[validation][via]") {
 // Oracle: isotropic etching by distance t under a round opening of radius R removes
 //         pi R^2 t + pi^2 R t^2 / 2 + 2 pi t^3 / 3.
 // Source: parallel body of a disk, derived here.
-// Tolerance: 16 cells across and 3 cells deep, 5 % of the volume (2 % is the goal). A lateral reach
+// Tolerance: 16 cells across and 3 cells deep, 4 % of the volume (2 % is the goal;
+// 2.7 % were measured). A lateral reach
 // that lags by half a cell must fail.
 TEST_CASE("isotropic etching undercuts a round opening", "[validation][via]") {
     TrenchCase t = via_case(96, 2, 32, 32);
@@ -116,7 +117,7 @@ TEST_CASE("isotropic etching undercuts a round opening", "[validation][via]") {
     CAPTURE(removed, volume(d));
     WARN("removed " << 100 * removed / volume(d)
                     << " % of the closed form; the goal is 98 to 102 %");
-    CHECK(removed / volume(d) > 0.95);
+    CHECK(removed / volume(d) > 0.96);
     CHECK(removed / volume(d) < 1.02);
-    CHECK_FALSE(volume(d - 1) / volume(d) > 0.95);
+    CHECK_FALSE(volume(d - 1) / volume(d) > 0.96);
 }
