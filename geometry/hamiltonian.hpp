@@ -32,7 +32,7 @@ struct RowPair {
 
 /// Part of one row about the angle where it will be read: rows come in no order and the tables are
 /// large, so what is read again and again is kept together.
-struct RateWindow {
+struct alignas(64) RateWindow {
     static constexpr int size = 6;
     int row = -1;
     short first = 0; ///< index of the first value

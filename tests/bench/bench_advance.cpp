@@ -181,6 +181,18 @@ nlohmann::json error_of(const std::function<double(const Vec3&)>& phi) {
             {"area_change_percent", 100 * (area / exact - 1)}};
 }
 
+/// < 0 inside a closed outline, by the number of its segments above p. (A front takes what lies
+/// below its lowest cell for solid, as in a wafer; under a disk there is none.)
+double side_of(const Surface& s, const Vec3& p) {
+    bool inside = false;
+    for (const auto& c : s.corners) {
+        const Vec3 &a = s.vertices[c[0]], &b = s.vertices[c[1]];
+        if ((a.x < p.x) == (b.x < p.x)) continue;
+        inside ^= a.z + (b.z - a.z) * (p.x - a.x) / (b.x - a.x) > p.z;
+    }
+    return inside ? -1 : 1;
+}
+
 /// Where a point of the disk is after the turn.
 Vec3 turned(const Vec3& p, double angle) {
     const double c = std::cos(angle), s = std::sin(angle);
@@ -218,10 +230,11 @@ nlohmann::json disk(int cells, double angle) {
             }
         }
     });
+    const Surface outline = extract_surface(front);
     nlohmann::json result{
         {"cells", cells},
         {"turns", angle / (2 * pi)},
-        {"ours", error_of([&](const Vec3& p) { return front.distance(turned(p, angle)); })}};
+        {"ours", error_of([&](const Vec3& p) { return side_of(outline, turned(p, angle)); })}};
     result["ours"]["seconds"] = ours;
 
     // The same disk as a cylinder of 12 cells, read in its middle.
