@@ -15,9 +15,9 @@ enum class SheathWay {
 };
 
 /// Thickness over mean free path `a` above which the closed forms, which know no collisions, are
-/// refused: charge exchange takes a / (m + 1) of the mean energy (first order of Davis and
-/// Vanderslice, derived), which is 1 % here and would be 4 % at a = 0.1.
-constexpr double collisionless_below = 0.023;
+/// refused. Below, what they leave out is a / (m + 1) of the mean energy (charge exchange to first
+/// order, Davis and Vanderslice, derived): 4 % at most, less than cross sections are known.
+constexpr double collisionless_below = 0.1;
 
 /// Chooses: where collisions count ions are followed one by one; so they are under a moving edge.
 SheathWay way_through(const Sheath&, const SheathIon&);

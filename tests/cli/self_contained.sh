@@ -18,7 +18,7 @@ E_lo_eV,E_hi_eV,weight
 60,100,0.4
 100,140,0.6
 T
-sed -e 's/rf_bias: {mean_sheath: 120 V}/ion_energies: {file: ions.csv}/' \
+sed -e 's/rf_bias: {frequency: 13.56 MHz, amplitude: 115 V}/ion_energies: {file: ions.csv}/' \
     -e 's/chemistry: silicon-cl2-ar/chemistry: own.yaml/' -e 's/spacing: 2 nm/spacing: 8 nm/' \
     -e 's/no_longer_than: 150 s/no_longer_than: 2 s/' "$root/examples/poly-trench/case.yaml" \
     >"$work/here/case.yaml"

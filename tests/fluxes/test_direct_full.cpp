@@ -113,7 +113,7 @@ TEST_CASE("direct ions, full: leaning ions and mixtures", "[direct][full]") {
     // Tolerance: 0.5 % of the floor's flux (4096 directions); the upright ions must fail.
     const Domain d = square(12);
     const Surface s = tests::revolved_hole(d, {{4, 0}, {0, 0}}, 12);
-    const RayCaster caster(d, s, 5);
+    const geometry::RayCaster caster(d, s, 5);
     DirectIons::Options options;
     options.directions = 4096;
     const auto spectrum = IonDistribution::falling_spectrum({40, 100, 400}, {1, 2}, 0.5);

@@ -165,9 +165,9 @@ TEST_CASE("faster mask erosion opens the CD", "[validation][trends]") {
 }
 
 // Oracle: a case that is its own mirror image, with nothing random in it, stays so.
-// Source: symmetry. Tolerance: 5e-5 nm, 1/40,000 cell: tables in single precision differ by 1e-7, and
-// at the foot of a wall under a narrow beam 70 refreshes make 1e-6 to 4e-5 nm of that, depending on
-// details of the scheme that have nothing to do with symmetry.
+// Source: symmetry. Tolerance: 5e-5 nm, 1/40,000 cell: tables in single precision differ by 1e-7,
+// and at the foot of a wall under a narrow beam 70 refreshes make 1e-6 to 4e-5 nm of that,
+// depending on details of the scheme that have nothing to do with symmetry.
 TEST_CASE("a mirror-symmetric case stays symmetric", "[validation][symmetry]") {
     const bool spread = GENERATE(false, true);
     TrenchCase t(120, 2, 60, 200);
