@@ -62,6 +62,36 @@ TEST_CASE("bow grows with the angular spread of the ions", "[validation][trends]
     }
 }
 
+// Oracle: the sheath is what makes an etch vertical: below the edge of a thin mask ions that fell
+// through 400 V without collisions take next to nothing, the same ions arriving from all directions
+// undercut it as a wet etch does.
+// Source: common practice, no source.
+// Tolerance: undercut below 2 % of the depth with the sheath, above 20 % without.
+TEST_CASE("a sheath makes the etch vertical", "[validation][trends]") {
+    for (const bool falls : {true, false}) {
+        TrenchCase t(160, 2.5, 10, 200);
+        t.add_opening("trench", 60);
+        t.set_ions(60, fluxes::IonDistribution::thermal_fall(0, 1, 1)); // the cosine law
+        if (falls) {
+            t.plasma().ion_energies.clear();
+            t.plasma().ion_transverse_temperature_ev = 0.05;
+            t.plasma().bias.given = engine::Bias::Given::mean_sheath;
+            t.plasma().bias.value = 400;
+        }
+        etch_by_ions(t, 0, flat_yield(1));
+        t.add_step("main", 40);
+        const auto outcome = run_quietly(t.c);
+        const double under = 0.5 * widening(t.c, outcome).value;
+        const double depth = floor_depth(t.c, outcome, 0);
+        CAPTURE(falls, under, depth);
+        CHECK(depth > 15);
+        if (falls)
+            CHECK(under < 0.02 * depth);
+        else
+            CHECK(under > 0.2 * depth);
+    }
+}
+
 // Oracle: a film that deposits on the walls and is kept off the floor by ions narrows the floor:
 // the floor narrows more the more of it arrives.
 // Source: continuous taper, angle from vertical = atan(g / v), derived here.
