@@ -3,16 +3,41 @@
 // the times of both beside the ratio.
 #include "timing.hpp"
 
+#include "engine/content_cache.hpp"
+#include "engine/packed_trajectories.hpp"
+#include "fluxes/sheath_arrival.hpp"
 #include "fluxes/sheath_filter.hpp"
 #include "fluxes/sheath_trajectories.hpp"
 
 #include <cmath>
+#include <filesystem>
 #include <iostream>
 #include <nlohmann/json.hpp>
 #include <tbb/global_control.h>
 
 using namespace rille;
 using namespace rille::fluxes;
+
+namespace {
+
+/// Time [s] to take binned trajectories from the cache and make the distribution of them.
+double cached_read(const Sheath& sheath, const SheathIon& ion, const TrajectorySampling& sampling) {
+    const std::string folder =
+        (std::filesystem::temp_directory_path() / "rille_bench_cache").string();
+    const engine::ContentCache cache(folder);
+    const std::vector<double> content = content_of(sheath, ion, sampling);
+    cache.keep(content, engine::packed(follow_into_bins(sheath, ion, sampling)));
+    std::vector<double> times;
+    for (int n = 0; n < 9; ++n)
+        times.push_back(bench::thread_seconds([&] {
+            const auto kept = engine::unpacked(*cache.find(content));
+            if (!(arrival_of(*kept).ions.front().mean_energy_ev() > 0)) std::abort();
+        }));
+    std::filesystem::remove_all(folder);
+    return bench::median(times);
+}
+
+} // namespace
 
 int main() {
     const tbb::global_control one(tbb::global_control::max_allowed_parallelism, 1);
