@@ -12,10 +12,11 @@ void check_range(const Sheath& sheath, const SheathIon& ion) {
     if (sheath.voltage.lowest() < 0)
         throw std::domain_error("the wafer would lie above the plasma for part of the period");
     const double thermal_ev = ev_per_kelvin * ion.gas_temperature_k;
-    if (collisionality(sheath, ion) * thermal_ev > sheath.voltage.mean())
+    const double collisions = collisionality(sheath, ion);
+    if (collisions > most_collisions || collisions * thermal_ev > sheath.voltage.mean())
         throw std::domain_error("ions of " + ion.name +
-                                " gain less than the gas has in heat between two collisions: they "
-                                "drift, which neither the closed form nor trajectories describe");
+                                " collide so often that they drift through the sheath, which "
+                                "neither the closed form nor trajectories describe");
 }
 
 SheathWay way_through(const Sheath& sheath, const SheathIon& ion) {

@@ -19,6 +19,10 @@ enum class SheathWay {
 /// order, Davis and Vanderslice, derived): 4 % at most, less than cross sections are known.
 constexpr double collisionless_below = 0.1;
 
+/// Thickness over mean free path above which ions drift: what they keep of the fall between two
+/// collisions is then a matter of mobility.
+constexpr double most_collisions = 100;
+
 /// Chooses: where collisions count ions are followed one by one; so they are under a moving edge.
 SheathWay way_through(const Sheath&, const SheathIon&);
 
@@ -36,8 +40,8 @@ struct BinnedTrajectories {
     double fast_neutrals_per_ion = 0;
 };
 
-/// Throws std::domain_error with a sentence where no way holds: a voltage below zero, or so many
-/// collisions that ions gain less than the thermal energy of the gas in a mean free path.
+/// Throws std::domain_error with a sentence where no way holds: a voltage below zero, more than
+/// most_collisions, or ions that gain less than the thermal energy of the gas in a mean free path.
 void check_range(const Sheath&, const SheathIon&);
 /// The ways without trajectories.
 SheathArrival arrive_in_closed_form(const Sheath&, const SheathIon&);
