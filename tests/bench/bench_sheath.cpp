@@ -59,6 +59,7 @@ int main() {
         {"ratio", c.ratio},
         {"closed_form_ms", 1e3 * c.ours},
         {"trajectories_100000_s", c.theirs},
+        {"cached_read_ms", 1e3 * cached_read(sheath, argon, sampling)},
         {"mean_energy_closed_eV", mean_a},
         {"mean_energy_trajectories_eV", mean_b},
         {"note", "time of 100,000 trajectories over that of the closed form"}};
