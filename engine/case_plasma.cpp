@@ -2,6 +2,7 @@
 #include "engine/case_build.hpp"
 
 #include "engine/words.hpp"
+#include "fluxes/plasma_laws.hpp"
 
 #include <fmt/format.h>
 
@@ -99,20 +100,14 @@ std::vector<std::pair<std::string, double>> gas_shares(const Entry& entry, Probl
     return shares;
 }
 
-/// Particles per volume at a pressure: p / (kB T) [nm^-3].
-double density_at(double pressure_pa, double temperature_k) {
-    constexpr double boltzmann_j_per_k = 1.380649e-23; // SI definition of 2019, exact
-    return pressure_pa / (boltzmann_j_per_k * temperature_k) * 1e-27;
-}
-
 void build_gas(const Entry& entry, Plasma& plasma, Problems& problems) {
     plasma.gas_temperature_k = entry["gas_temperature"].number;
     const Entry& pressure = entry["pressure"];
     if (pressure.is_good) plasma.pressure_pa = pressure.number;
     for (const auto& [gas, share] : gas_shares(entry, problems))
-        if (share > 0 && pressure.is_good)
+        if (share > 0 && pressure.is_good && plasma.gas_temperature_k > 0)
             plasma.gases.push_back(
-                {gas, share * density_at(pressure.number, plasma.gas_temperature_k)});
+                {gas, share * fluxes::gas_density(pressure.number, plasma.gas_temperature_k)});
 }
 
 /// Density of one neutral [nm^-3], from its own pressure or from the gas; flux 0 until its mass is
@@ -128,7 +123,8 @@ void build_neutral(const Entry& entry, const std::string& name, Plasma& plasma,
         problems.add(partial.at, partial.path,
                      "flux and partial_pressure are both given; give one");
     neutral.flux = flux.number;
-    if (partial.is_good) neutral.density = density_at(partial.number, neutral.temperature_k);
+    if (partial.is_good && neutral.temperature_k > 0) // a bad temperature is reported already
+        neutral.density = fluxes::gas_density(partial.number, neutral.temperature_k);
     if (!flux.is_given && !partial.is_given) {
         const auto gas = std::find_if(plasma.gases.begin(), plasma.gases.end(),
                                       [&](const PlasmaGas& g) { return g.name == name; });
