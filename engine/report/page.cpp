@@ -132,10 +132,17 @@ std::string inline_svg(const std::string& svg, const std::string& prefix) {
 }
 
 std::string figure_html(const Figure& figure) {
-    return "<figure id=\"" + figure.id + "\" class=\"drawing\">\n<div class=\"frame\" style=\"" +
-           fmt::format("--least: {:.0f}px", figure.least_width) + "\">\n" +
-           inline_svg(figure.svg, figure.id) + "</div>\n" + figure.controls + "<figcaption>" +
-           escaped(figure.caption) +
+    std::string html = "<figure id=\"" + figure.id + "\" class=\"drawing" +
+                       (figure.narrow.empty() ? "" : " two-forms") +
+                       "\">\n<div class=\"frame\" style=\"" +
+                       fmt::format("--least: {:.0f}px", figure.least_width) + "\">\n" +
+                       inline_svg(figure.svg, figure.id) + "</div>\n";
+    if (!figure.narrow.empty())
+        html += "<div class=\"frame narrow\">\n" +
+                inline_svg(figure.narrow, figure.id + "-narrow") + "</div>\n";
+    if (!figure.slide.empty())
+        html += "<template>" + inline_svg(figure.slide, figure.id + "-slide") + "</template>\n";
+    return html + figure.controls + "<figcaption>" + escaped(figure.caption) +
            " <span class=\"tools\"><button type=\"button\" data-save=\"svg\">SVG</button> "
            "<button type=\"button\" data-save=\"png\">PNG 1920 × 1080</button></span>"
            "</figcaption>\n</figure>\n";

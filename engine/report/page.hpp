@@ -39,12 +39,14 @@ std::string page_html(const Page&);
 /// A figure with its downloads: SVG, and PNG of 1920 x 1080 for a slide. The SVG itself must carry
 /// title and caution, since it is what is saved.
 struct Figure {
-    std::string id;      ///< one of its kind on the page; also the name of the saved file
-    std::string svg;     ///< a whole SVG document, as Svg::finish gives it
-    std::string caption; ///< text
+    std::string id;       ///< one of its kind on the page; also the name of the saved file
+    std::string svg;      ///< a whole SVG document, as Svg::finish gives it
+    std::string caption;  ///< text
+    std::string narrow{}; ///< shown instead on a screen of a hand's width; empty: `svg`
+    std::string slide{};  ///< what the PNG holds; empty: the drawing as it is shown
     /// Narrowest width at which the drawing can be read [px]: it is not drawn smaller, but scrolls
     /// inside its frame.
-    double least_width = 340;
+    double least_width = 300;
     std::string controls{}; ///< HTML between drawing and caption
 };
 std::string figure_html(const Figure&);

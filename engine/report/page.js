@@ -24,9 +24,13 @@ const rille = (() => {
         say(name + " saved");
     };
 
-    /* The drawing as it is shown now, as a document of its own. */
-    const svgText = (figure, width, height) => {
-        const svg = figure.querySelector("svg").cloneNode(true);
+    /* The drawing that a slide takes: made for it, or as it is shown. */
+    const slideOf = figure =>
+        (figure.querySelector("template")?.content ?? figure).querySelector("svg");
+
+    /* A drawing as it is shown now, as a document of its own. */
+    const svgText = (drawing, width, height) => {
+        const svg = drawing.cloneNode(true);
         svg.setAttribute("xmlns", "http://www.w3.org/2000/svg");
         for (const hidden of svg.querySelectorAll('[display="none"]')) hidden.remove();
         if (width) {
@@ -37,9 +41,10 @@ const rille = (() => {
     };
 
     const savePng = figure => {
-        const box = figure.querySelector("svg").viewBox.baseVal;
-        const scale = Math.min(slide.width / box.width, slide.height / box.height);
-        const width = box.width * scale, height = box.height * scale;
+        const drawing = slideOf(figure);
+        const [, , boxWidth, boxHeight] = drawing.getAttribute("viewBox").split(/[ ,]+/).map(Number);
+        const scale = Math.min(slide.width / boxWidth, slide.height / boxHeight);
+        const width = boxWidth * scale, height = boxHeight * scale;
         const image = new Image();
         image.onload = () => {
             const canvas = document.createElement("canvas");
@@ -54,7 +59,7 @@ const rille = (() => {
         };
         image.onerror = () => say("this browser cannot draw the picture; save it as SVG");
         image.src = "data:image/svg+xml;charset=utf-8," +
-            encodeURIComponent(svgText(figure, width, height));
+            encodeURIComponent(svgText(drawing, width, height));
     };
 
     /* Numbers at full precision where a cell has them. */
@@ -86,7 +91,8 @@ const rille = (() => {
         const figure = button.closest("figure"), table = button.closest(".table");
         switch (button.dataset.save) {
         case "svg":
-            return save(figure.id + ".svg", new Blob([svgText(figure)], {type: "image/svg+xml"}));
+            return save(figure.id + ".svg", new Blob([svgText(figure.querySelector("svg"))],
+                                                     {type: "image/svg+xml"}));
         case "png":
             return savePng(figure);
         case "copy":
