@@ -165,6 +165,16 @@ std::string table_html(const DataTable& table) {
            "TSV</button></p>\n</div>\n";
 }
 
+std::string escaped_lines(const std::string& text) {
+    std::string html;
+    for (std::size_t start = 0; start < text.size();) {
+        const std::size_t end = std::min(text.find('\n', start), text.size());
+        html += escaped(text.substr(start, end - start)) + (end < text.size() ? "\n" : "");
+        start = end + 1;
+    }
+    return html;
+}
+
 std::string id_of(const std::string& name) {
     std::string id;
     for (const char c : name) {

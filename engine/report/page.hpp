@@ -75,6 +75,8 @@ struct DataTable {
 };
 std::string table_html(const DataTable&);
 
+/// Text for HTML with its line breaks kept; other control characters become spaces.
+std::string escaped_lines(const std::string& text);
 /// A name as part of an id: lower case letters, digits, hyphens.
 std::string id_of(const std::string& name);
 
