@@ -210,7 +210,7 @@ TEST_CASE("a plasma copies another; what is given replaces") {
     const Plasma& soft = c.plasmas.at("soft");
     CHECK(soft.bias.value == 40);
     CHECK(soft.neutrals.at(0).flux == Approx(1e4));
-    CHECK(soft.neutrals.at(0).temperature_k == 300); // the whole key is replaced
+    CHECK(soft.neutrals.at(0).temperature_k == 400); // the key is replaced: as the gas
     CHECK(soft.ion_flux == c.plasmas.at("main").ion_flux);
     CHECK(c.resolved_yaml.find("from:") == std::string::npos);
 }
