@@ -57,6 +57,38 @@ void add_seed(CLI::App& command, engine::CommonOptions& options) {
         ->type_name("N");
 }
 
+/// What the jobs of a cluster are told.
+struct ClusterWords {
+    std::string round;
+    std::size_t task = 0, points_per_task = 1;
+    int workers = 1;
+};
+
+void add_study(CLI::App& command, std::string& path, engine::StudyOptions& options) {
+    command.add_option("study", path, "Study file (YAML)")->type_name("FILE")->required();
+    command.add_option("-o", options.folder, "Folder for the results")
+        ->type_name("DIR")
+        ->capture_default_str();
+    command
+        .add_option("--workers", options.workers,
+                    "Points to run at once (default: as many as there are cores)")
+        ->check(CLI::Range(1, 4096).description(""))
+        ->type_name("N");
+    command.add_flag("--plan", options.plan_only, "Show the plan and what it costs; run nothing");
+    command.add_flag("--slurm", options.slurm,
+                     "Hand the missing points to the Slurm cluster of this machine");
+    command.add_flag("--collect", options.collect, "Only put together the points that are there");
+    command.add_option("--retry", options.retry, "Do points again that are failed or killed")
+        ->check(CLI::IsMember({"failed", "killed"}))
+        ->type_name("STATUS")
+        ->allow_extra_args(false);
+    command.add_flag("--force", options.force, "Remove an earlier study from the folder first");
+    command.footer("Exit status: 0 every point has a result (not cleared and clogged are results), "
+                   "4 points failed, were\nkilled or are missing, 130 or 143 stopped; the others "
+                   "as of every command.\n" +
+                   std::string(engine::caution));
+}
+
 /// What is wrong with the words of the command line where a command or an option is unknown; else
 /// empty.
 std::string slip_in(const CLI::App& app, int argc, char** argv) {
@@ -105,6 +137,14 @@ int dispatch(int argc, char** argv) {
     auto* sheath = app.add_subcommand(
         "sheath", "Show what reaches the wafer: energies, angles and fluxes of the ions");
     auto* measure = app.add_subcommand("measure", "Measure a finished run again");
+    engine::StudyOptions study_options;
+    auto* study = app.add_subcommand("study", "Run a case many times with values changed, and put "
+                                              "the results together; the same command goes on "
+                                              "after a stop");
+    ClusterWords words;
+    auto* worker = app.add_subcommand("study-worker", "Run points of a study for another process");
+    auto* task = app.add_subcommand("study-task", "Run the points of one task of a job array");
+    auto* collect = app.add_subcommand("study-collect", "Look after a job array that has ended");
     auto* schema = app.add_subcommand("schema", "Print the JSON Schema of a case file");
     run->add_option("case", path, "Case file (YAML)")->type_name("FILE")->required();
     run->add_option("-o", folder, "Folder for the result")->type_name("DIR")->capture_default_str();
@@ -120,13 +160,23 @@ int dispatch(int argc, char** argv) {
     resume->add_option("folder", folder, "Folder of the run")->type_name("DIR")->required();
     resume->footer(engine::caution);
     measure->add_option("folder", folder, "Folder of a run")->type_name("DIR")->required();
-    for (CLI::App* command : {run, check, sheath, measure})
+    add_study(*study, path, study_options);
+    for (CLI::App* command : {worker, task, collect}) {
+        command->add_option("folder", folder, "Folder of the study")->type_name("DIR")->required();
+        command->group(""); // for the program itself
+    }
+    for (CLI::App* command : {task, collect})
+        command->add_option("round", words.round, "Folder of the round")->required();
+    task->add_option("task", words.task, "Number of the task, from 0")->required();
+    task->add_option("--points-per-task", words.points_per_task)->check(CLI::PositiveNumber);
+    task->add_option("--workers", words.workers)->check(CLI::PositiveNumber);
+    for (CLI::App* command : {run, check, sheath, measure, study})
         add_overrides(*command, options);
-    for (CLI::App* command : {run, resume, check, sheath, measure})
+    for (CLI::App* command : {run, resume, check, sheath, measure, study, worker, task})
         add_common(*command, options);
     for (CLI::App* command : {run, sheath})
         add_seed(*command, options);
-    for (CLI::App* command : {run, resume, sheath})
+    for (CLI::App* command : {run, resume, sheath, study})
         command->add_flag("--quiet", options.quiet, "Print nothing but errors");
     try {
         app.parse(argc, argv);
@@ -135,6 +185,13 @@ int dispatch(int argc, char** argv) {
         if (slip.empty()) return app.exit(error) == 0 ? 0 : 2;
         std::cerr << slip << "\nRun with --help for more information.\n";
         return 2;
+    }
+    if (*worker) {
+        quiet = 1;
+        std::signal(SIGINT, SIG_IGN); // the terminal tells everyone; who started it decides
+        std::signal(SIGTERM, on_signal);
+        std::signal(SIGPIPE, SIG_IGN);
+        return engine::study_worker_command(folder, std::max(1, options.threads), stop);
     }
     std::optional<tbb::global_control> limit;
     if (options.threads > 0)
@@ -146,8 +203,15 @@ int dispatch(int argc, char** argv) {
     quiet = options.quiet;
     std::signal(SIGINT, on_signal);
     std::signal(SIGTERM, on_signal);
-    const int status = *resume ? engine::resume_command(folder, options, stop)
-                               : engine::run_command(path, folder, force, options, stop);
+    // A worker that dies is heard of by its end.
+    if (*study || *task || *collect) std::signal(SIGPIPE, SIG_IGN);
+    if (*collect) return engine::study_collect_command(folder, words.round);
+    const int status =
+        *study  ? engine::study_command(path, study_options, options, stop)
+        : *task ? engine::study_task_command(folder, words.round, words.task, words.points_per_task,
+                                             words.workers, options, stop)
+        : *resume ? engine::resume_command(folder, options, stop)
+                  : engine::run_command(path, folder, force, options, stop);
     return status == engine::interrupted_status ? 128 + signal_number : status;
 }
 
