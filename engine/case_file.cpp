@@ -51,6 +51,7 @@ Case build(YamlNode& node, const std::string& name, const std::string& folder,
         build_plasmas(root, result, problems);
         build_recipe(root, result, problems);
         build_measure(root, result, problems);
+        build_measured(root, result, problems);
         build_targets(root, result, problems);
         build_sampling(root, result, problems);
         build_chemistry(root, folder, result, problems);
