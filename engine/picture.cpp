@@ -78,7 +78,7 @@ double draw_measured(Svg& svg, const PictureContext& p, double x, double y) {
     double at = y + heading(svg, x, y, "Measured");
     int rows = 0;
     for (const Metric& m : p.metrics.metrics) {
-        if (!m.value || m.name.find("cd_change") != std::string::npos) continue;
+        if (!m.value || m.name.find("cd_") != std::string::npos) continue;
         if (++rows > 22) {
             svg.text(x, at, "more in metrics.json",
                      {11, Anchor::start, false, "#555555", false, 0});
