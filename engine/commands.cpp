@@ -8,6 +8,7 @@
 #include "engine/metrics.hpp"
 #include "engine/output_names.hpp"
 #include "engine/problems.hpp"
+#include "engine/report/run_page.hpp"
 #include "engine/run.hpp"
 #include "engine/run_output.hpp"
 #include "engine/sheath_output.hpp"
@@ -84,17 +85,10 @@ private:
 
 /// The latest frame in a run's folder. Throws OutputError if there is none.
 std::string last_frame(const std::string& folder) {
-    const std::filesystem::path frames = std::filesystem::path(folder) / output_names::frames;
-    std::string last;
-    std::error_code missing;
-    for (const auto& entry : std::filesystem::directory_iterator(frames, missing)) {
-        const std::string file = entry.path().string();
-        const bool later = file.size() != last.size() ? file.size() > last.size() : file > last;
-        if (entry.path().extension() == ".vtp" && later) last = file;
-    }
-    if (last.empty())
+    const std::vector<std::string> frames = frame_files(folder);
+    if (frames.empty())
         throw OutputError(folder, "looking for the frames of a run", "there are none here");
-    return last;
+    return frames.back();
 }
 
 int threads_in_use(const CommonOptions& options) {
@@ -108,7 +102,7 @@ bool all_met(const Metrics& metrics) {
 }
 
 /// Runs to the end with everything that is told and written on the way; the exit status.
-int follow(const Case& the_case, const std::string& folder, RunOutput& output,
+int follow(const Case& the_case, OutputFolder& folder, RunOutput& output,
            const CommonOptions& options, const std::atomic<bool>& stop,
            const std::function<RunResult(RunObserver&)>& go) {
     const std::string started = utc_now();
@@ -119,11 +113,13 @@ int follow(const Case& the_case, const std::string& folder, RunOutput& output,
     result.record.command = options.command_line;
     result.record.threads = threads_in_use(options);
     result.record.started = started;
+    folder.note(output_names::report); // written last, and the record lists it
     const Metrics metrics = output.finish(result);
+    write_run_report(folder, the_case);
     if (options.json)
         std::cout << metrics_json(the_case, metrics).dump(2) << '\n';
     else if (!options.quiet)
-        std::cout << closing_text(the_case, result.record, metrics, folder);
+        std::cout << closing_text(the_case, result.record, metrics, folder.path());
     if (result.error) std::rethrow_exception(result.error);
     if (result.record.status == "interrupted") return interrupted_status;
     return options.require_targets && !all_met(metrics) ? goal_not_met_status : 0;
@@ -137,7 +133,7 @@ int run_command(const std::string& case_path, const std::string& folder, bool fo
     OutputFolder out(folder,
                      force ? OutputFolder::Existing::force : OutputFolder::Existing::refuse);
     RunOutput output(out, the_case);
-    return follow(the_case, folder, output, options, stop,
+    return follow(the_case, out, output, options, stop,
                   [&](RunObserver& watcher) { return run_case(the_case, watcher, stop); });
 }
 
@@ -152,7 +148,7 @@ int resume_command(const std::string& folder, const CommonOptions& options,
     const Case the_case = load((fs::path(folder) / output_names::resolved_case).string(), options);
     const RunState state = read_state(the_case, read_file(path), path);
     RunOutput output(out, the_case, state.frames);
-    return follow(the_case, folder, output, options, stop, [&](RunObserver& watcher) {
+    return follow(the_case, out, output, options, stop, [&](RunObserver& watcher) {
         return resume_case(the_case, state, watcher, stop);
     });
 }
