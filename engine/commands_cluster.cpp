@@ -49,12 +49,13 @@ int submit_study(const std::string& folder, const Study& study, const CommonOpti
     return 0;
 }
 
-int study_task_command(const std::string& folder, const std::string& round, std::size_t task,
-                       std::size_t points_per_task, int workers, const CommonOptions& options,
-                       const std::atomic<bool>& stop) {
+int study_task_command(const std::string& folder, const StudyTask& task,
+                       const CommonOptions& options, const std::atomic<bool>& stop) {
     const StudyAtWork work = open_study(folder);
-    const std::vector<std::size_t> points = points_of_task(round, task, points_per_task);
-    LocalSettings settings = local_settings(workers, options.threads, workers, points.size());
+    const std::vector<std::size_t> points =
+        points_of_task(task.round, task.task, task.points_per_task);
+    LocalSettings settings =
+        local_settings(task.workers, options.threads, task.workers, points.size());
     settings.retries_killed = work.study.slurm.retries_killed;
     LocalWatch watch;
     watch.noted = [](const std::string& text) { std::cout << text << std::endl; };
@@ -62,7 +63,7 @@ int study_task_command(const std::string& folder, const std::string& round, std:
         return at < points.size() ? std::optional(points[at++]) : std::nullopt;
     };
     const bool ended = run_points(work.folder, work.study, next, settings, watch, stop);
-    std::cout << fmt::format("task {}: {} points {}\n", task, points.size(),
+    std::cout << fmt::format("task {}: {} points {}\n", task.task, points.size(),
                              ended ? "ended" : "were stopped before their end");
     return ended ? 0 : interrupted_status;
 }

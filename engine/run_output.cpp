@@ -102,6 +102,8 @@ Metrics RunOutput::finish(const RunResult& result, const RunParts& parts) {
     if (parts.profile) folder_.write(output_names::profile, profile_csv(case_, result.last));
     Metrics metrics = measure(case_, result.last);
     folder_.write(output_names::metrics, json_text(metrics_json(case_, metrics)));
+    if (parts.profile && !metrics.comparison.contours.empty())
+        folder_.write(output_names::comparison, comparison_csv(case_, metrics.comparison));
     if (parts.level_set && result.write_level_set)
         folder_.write_with(output_names::level_set, result.write_level_set);
     if (result.record.status == "done" || result.record.status == "not cleared")

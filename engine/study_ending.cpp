@@ -59,6 +59,14 @@ nlohmann::json counts_json(const Study& study, const StudyResults& results) {
             {"warnings", results.warnings}};
 }
 
+bool all_targets_met(const std::string& folder) {
+    const StudyTable table = read_study_table(folder);
+    for (const std::size_t column : table.all(StudyTableColumn::Role::target))
+        for (std::size_t row = 0; row < table.rows(); ++row)
+            if (table.text(row, column) != "met") return false;
+    return true;
+}
+
 } // namespace
 
 void write_study_pages(const std::string&, const Study&) {}
@@ -73,7 +81,8 @@ int conclude_study(const std::string& folder, const Study& study, const CommonOp
         std::cout << closing(study, results, folder, stopped);
     if (stopped) return interrupted_status;
     const StudyCounts& n = results.counts;
-    return n.failed + n.killed + n.missing() ? incomplete_status : 0;
+    if (n.failed + n.killed + n.missing()) return incomplete_status;
+    return options.require_targets && !all_targets_met(folder) ? goal_not_met_status : 0;
 }
 
 } // namespace rille::engine
