@@ -95,7 +95,8 @@ struct StudyResults {
     std::vector<std::string> warnings;  ///< points made on different kinds of processors
 };
 
-/// Writes DIR/results.csv from the folders of the points, in one pass over them. Throws OutputError.
+/// Writes DIR/results.csv from the folders of the points, in one pass over them. Throws
+/// OutputError.
 StudyResults write_study_results(const std::string& folder, const Study&);
 
 } // namespace rille::engine

@@ -27,7 +27,7 @@ inline constexpr const char* done = "done";
 inline constexpr const char* not_cleared = "not cleared"; ///< a result; the time is a lower bound
 inline constexpr const char* clogged = "clogged";         ///< a result: an opening closed or filled
 inline constexpr const char* failed = "failed";           ///< numerics, or input bad at this point
-inline constexpr const char* killed = "killed"; ///< its process ended each time that it was tried
+inline constexpr const char* killed = "killed";   ///< its process ended each time that it was tried
 inline constexpr const char* missing = "missing"; ///< never finished; has no row
 
 } // namespace rille::engine::study_names
