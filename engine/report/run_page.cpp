@@ -87,8 +87,8 @@ json moments_json(const RunParts& p, const Frames& frames) {
                                                       : "none"});
             };
             add("depth", "depth_centre");
-            for (const auto& place : p.c.cd_places)
-                add(place.first + " CD", "cd_" + column_name(place.first));
+            for (const std::string& place : places_from_the_top(p.c))
+                add(place + " CD", "cd_" + column_name(place));
             add("mask left", "mask_left");
         }
         moments.push_back({{"time", time_text(time_s)}, {"step", step}, {"values", values}});
@@ -105,7 +105,7 @@ std::string slider_html(std::size_t moments) {
 }
 
 PageSection time_section(const RunParts& p, const Frames& frames, Page& page) {
-    PageSection section{"over-time", "The profile over time", "", false};
+    PageSection section{"over-time", "The profile over time", "", false, "Over time"};
     if (frames.moments.size() < 2) return section;
     Figure figure;
     figure.id = "profile-over-time";
@@ -140,12 +140,10 @@ std::string summary_html(const RunParts& p, const Frames* frames) {
         warnings = fmt::format("<p class=\"warning\"><a href=\"#warnings\">{} warning{}</a></p>\n",
                                count, count == 1 ? "" : "s");
     return "<div class=\"sides first\">\n<div>\n" + picture_html(p, frames) + "</div>\n<div>\n" +
-           outcome_html(p) + warnings + "<h2>What came out</h2>\n" + results_html(p) +
-           "<h2>Targets</h2>\n" + targets_html(p) + "<h2>What it rests on</h2>\n" +
-           standing_html(p) + "<p class=\"caution\">" + escaped(caution) +
-           "</p>\n</div>\n</div>\n<section id=\"asked\" aria-labelledby=\"asked-title\">"
-           "<h2 id=\"asked-title\">What was asked</h2>\n" +
-           asked_html(p) + "</section>\n";
+           outcome_html(p) + warnings + "<div class=\"sides\"><div><h2>What came out</h2>\n" +
+           results_html(p) + "</div>\n<div><h2>What was asked</h2>\n" + asked_html(p) +
+           "</div></div>\n<h2>Targets</h2>\n" + targets_html(p) + "<h2>What it rests on</h2>\n" +
+           standing_html(p) + "<p class=\"caution\">" + escaped(caution) + "</p>\n</div>\n</div>\n";
 }
 
 } // namespace
