@@ -22,7 +22,7 @@ std::string quoted_word(const std::string& text) {
 }
 
 /// In names of log files a percent sign starts a pattern.
-std::string log_name(const std::string& path) {
+std::string in_log_names(const std::string& path) {
     std::string name;
     for (const char c : path)
         name += c == '%' ? std::string("%%") : std::string(1, c);
@@ -49,7 +49,7 @@ std::string head(const Study& study, const std::string& what, long minutes, long
     text += directive(fmt::format("--time={}", minutes));
     text += directive(fmt::format("--mem={}M", memory_mb));
     text += directive("--open-mode=append");
-    text += directive("--output=" + quoted_word(log_name(log)));
+    text += directive("--output=" + quoted_word(log));
     return text;
 }
 
@@ -89,7 +89,7 @@ std::string slurm_array_script(const Study& study, const SlurmPlan& plan, const 
                                std::size_t first_task, std::size_t tasks) {
     const SlurmSettings& slurm = study.slurm;
     std::string text = head(study, "Points of a study", plan.minutes, plan.memory_mb,
-                            paths.round + "/task_%A_%a.log");
+                            in_log_names(paths.round) + "/task_%A_%a.log");
     const std::string throttle =
         slurm.at_most_tasks > 0 ? fmt::format("%{}", slurm.at_most_tasks) : "";
     text += directive(fmt::format("--array=0-{}{}", tasks - 1, throttle));
@@ -107,7 +107,7 @@ std::string slurm_array_script(const Study& study, const SlurmPlan& plan, const 
 
 std::string slurm_collect_script(const Study& study, const SlurmPlan&, const SlurmPaths& paths) {
     std::string text = head(study, "Results of a study", collect_minutes, collect_mb,
-                            paths.round + "/collect.log");
+                            in_log_names(paths.round) + "/collect.log");
     text += own_lines(study);
     return text + fmt::format("exec {} study-collect {} {}\n", quoted_word(paths.program),
                               quoted_word(paths.folder), quoted_word(paths.round));

@@ -53,6 +53,7 @@ script=$out/slurm/0001/array_0.sh
 for words in '--partition=.main' '--array=0-2%2' '--mem=300M' '--signal=B:TERM@10' '--time=3' 'export SEEN=yes'; do
     grep -q -e "$words" "$script" || fail "$words: $(cat "$script")"
 done
+[ -z "$(ls "$out/slurm/0001" | grep %)" ] || fail "names of logs"
 # Asked again while it runs: nothing is submitted twice.
 study --slurm --quiet || fail "asked again: status $?"
 [ "$(ls "$out/slurm")" = 0001 ] || fail "submitted twice"
