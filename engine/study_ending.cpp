@@ -2,6 +2,7 @@
 #include "engine/study_ending.hpp"
 
 #include "engine/caution.hpp"
+#include "engine/report/study_page.hpp"
 #include "engine/study/results.hpp"
 #include "engine/study/study_names.hpp"
 
@@ -69,7 +70,10 @@ bool all_targets_met(const std::string& folder) {
 
 } // namespace
 
-void write_study_pages(const std::string&, const Study&) {}
+void write_study_pages(const std::string& folder, const Study&) {
+    OutputFolder out(folder, OutputFolder::Existing::keep);
+    write_study_report(out);
+}
 
 int conclude_study(const std::string& folder, const Study& study, const CommonOptions& options,
                    bool stopped) {
