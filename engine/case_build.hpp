@@ -55,6 +55,8 @@ void build_recipe(const Entry& root, Case&, Problems&);
 /// into `root`.
 void build_measure(Entry& root, Case&, Problems&);
 void build_targets(const Entry& root, Case&, Problems&);
+/// Contour and CD table to compare with; after build_measure.
+void build_measured(const Entry& root, Case&, Problems&);
 /// The mechanism for the materials, ions and neutrals of the case; masses of the ions.
 void build_chemistry(const Entry& root, const std::string& folder, Case&, Problems&);
 /// What reaches the wafer, once species have masses: fluxes of neutrals that were given by density,

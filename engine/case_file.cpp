@@ -61,6 +61,7 @@ BuiltCase build_case(YamlNode node, const std::string& name, const std::string& 
     build_plasmas(root, result, problems);
     build_recipe(root, result, problems);
     build_measure(root, result, problems);
+    build_measured(root, result, problems);
     build_targets(root, result, problems);
     build_sampling(root, result, problems);
     build_chemistry(root, folder, result, problems);

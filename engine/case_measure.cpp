@@ -1,6 +1,7 @@
 // SPDX-License-Identifier: Apache-2.0
 #include "engine/case_build.hpp"
 
+#include "engine/comparison.hpp"
 #include "engine/metrics.hpp"
 #include "engine/words.hpp"
 
@@ -140,6 +141,13 @@ std::vector<MetricName> names_with(const std::vector<std::string>& labels, const
     for (const char* name : {"sidewall angle left", "sidewall angle right", "facet angle"})
         list.push_back({name, angle});
     list.push_back({"selectivity", std::nullopt});
+    if (const auto& contour = c.measured.contour) {
+        const bool several = contour->cut_most > contour->cut_least;
+        for (const double cut : {contour->cut_least, contour->cut_most})
+            list.push_back({contour_metric(cut, several), length});
+    }
+    for (const MeasuredCd& cd : c.measured.cds)
+        list.push_back({cd.place + " cd difference", length});
     for (const geometry::Film& film : c.films)
         if (film.name != "mask") list.push_back({film.name + " loss", length});
     return list;

@@ -151,8 +151,8 @@ void make_files_absolute(YamlNode& node, const std::string& folder) {
 } // namespace
 
 bool names_a_file(const std::string& key) {
-    static const char* const keys[] = {"file", "retarding_curve", "waveform", "cross_sections",
-                                       "table"};
+    static const char* const keys[] = {"file",  "retarding_curve", "waveform", "cross_sections",
+                                       "table", "contour",         "cd_table"};
     return std::find(std::begin(keys), std::end(keys), key) != std::end(keys);
 }
 
@@ -210,7 +210,8 @@ void absolute_files(YamlNode& root, const std::string& folder) {
     const std::string text = chemistry ? chemistry->text : "";
     if (text.find('/') != std::string::npos || text.find(".yaml") != std::string::npos)
         make_absolute(chemistry, folder);
-    if (YamlNode* plasmas = root.find("plasmas")) make_files_absolute(*plasmas, folder);
+    for (const char* key : {"plasmas", "measured"})
+        if (YamlNode* part = root.find(key)) make_files_absolute(*part, folder);
 }
 
 } // namespace rille::engine

@@ -12,6 +12,9 @@ namespace rille::engine {
 /// What run_command returns when it was stopped before its end.
 constexpr int interrupted_status = 130;
 
+/// What run_command and resume_command return when targets are required and not all are met.
+constexpr int goal_not_met_status = 6;
+
 /// What every command understands.
 struct CommonOptions {
     std::vector<std::string> overrides; ///< "key.path=value"
@@ -19,7 +22,8 @@ struct CommonOptions {
     int threads = 0; ///< 0 = all cores
     bool quiet = false;
     bool json = false;
-    std::string command_line; ///< as typed, for the record
+    bool require_targets = false; ///< a target that is not met is goal_not_met_status
+    std::string command_line;     ///< as typed, for the record
 };
 
 /// Each command returns its exit status and throws InputError, OutputError, NumericsError.
@@ -35,6 +39,9 @@ int sheath_command(const std::string& case_path, const std::string& folder, bool
 /// Measures the last state that a run left in `folder` again, under the case kept there with the
 /// overrides given (`--set measure.cd.top=...`).
 int measure_command(const std::string& folder, const CommonOptions&);
+/// Writes report.html into the folder of a run again; with `figures` also every figure as SVG and
+/// as PNG of 1920 x 1080 px into its folder `figures`.
+int report_command(const std::vector<std::string>& folders, bool figures, const CommonOptions&);
 int schema_command();
 
 } // namespace rille::engine

@@ -85,7 +85,8 @@ int dispatch(int argc, char** argv) {
     CLI::App app("rille: the profile that a plasma etch leaves in a film stack");
     app.footer(
         std::string("Exit status: 0 done, 1 internal error, 2 usage, 3 bad input, 4 numerics, 5 "
-                    "file, 130 or 143 interrupted\nwith valid output. A film that did not clear is "
+                    "file, 6 a required target is not met, 130 or 143 interrupted\nwith valid "
+                    "output. A film that did not clear is "
                     "a result (0), unless its step says must_end.\n\n") +
         engine::caution);
     app.set_version_flag("--version", "rille " + engine::version() + " (" + engine::revision() +
@@ -105,6 +106,10 @@ int dispatch(int argc, char** argv) {
     auto* sheath = app.add_subcommand(
         "sheath", "Show what reaches the wafer: energies, angles and fluxes of the ions");
     auto* measure = app.add_subcommand("measure", "Measure a finished run again");
+    std::vector<std::string> folders;
+    bool figures = false;
+    auto* report = app.add_subcommand(
+        "report", "Write the report of a run into its folder again: one HTML file");
     auto* schema = app.add_subcommand("schema", "Print the JSON Schema of a case file");
     run->add_option("case", path, "Case file (YAML)")->type_name("FILE")->required();
     run->add_option("-o", folder, "Folder for the result")->type_name("DIR")->capture_default_str();
@@ -120,13 +125,20 @@ int dispatch(int argc, char** argv) {
     resume->add_option("folder", folder, "Folder of the run")->type_name("DIR")->required();
     resume->footer(engine::caution);
     measure->add_option("folder", folder, "Folder of a run")->type_name("DIR")->required();
+    report->add_option("folder", folders, "Folder of a run")->type_name("DIR")->required();
+    report->add_flag("--figures", figures,
+                     "Write each figure as SVG and as PNG of 1920 x 1080 into DIR/figures too");
+    report->footer(engine::caution);
     for (CLI::App* command : {run, check, sheath, measure})
         add_overrides(*command, options);
     for (CLI::App* command : {run, resume, check, sheath, measure})
         add_common(*command, options);
     for (CLI::App* command : {run, sheath})
         add_seed(*command, options);
-    for (CLI::App* command : {run, resume, sheath})
+    for (CLI::App* command : {run, resume})
+        command->add_flag("--require-targets", options.require_targets,
+                          "Exit with 6 unless every target is met; undecided is not met");
+    for (CLI::App* command : {run, resume, sheath, report})
         command->add_flag("--quiet", options.quiet, "Print nothing but errors");
     try {
         app.parse(argc, argv);
@@ -142,6 +154,7 @@ int dispatch(int argc, char** argv) {
     if (*check) return engine::check_command(path, options);
     if (*sheath) return engine::sheath_command(path, sheath_folder, force, options);
     if (*measure) return engine::measure_command(folder, options);
+    if (*report) return engine::report_command(folders, figures, options);
     if (*schema) return engine::schema_command();
     quiet = options.quiet;
     std::signal(SIGINT, on_signal);

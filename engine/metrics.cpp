@@ -343,6 +343,9 @@ Metrics measure(const Case& c, const SurfaceState& state) {
         const auto floor = geometry::floor_of(c.domain, state.surface, sites[f]);
         if (floor) find_clearing(c, c.mask.openings[f].name, *floor, result.clearing);
     }
+    result.comparison = compare_measured(c, state);
+    for (Metric& metric : comparison_metrics(result.comparison))
+        result.metrics.push_back(std::move(metric));
     result.targets = judge_targets(c, result);
     return result;
 }

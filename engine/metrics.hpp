@@ -1,6 +1,7 @@
 // SPDX-License-Identifier: Apache-2.0
 #pragma once
 
+#include "engine/comparison.hpp"
 #include "engine/history.hpp"
 #include "engine/run_result.hpp"
 #include "engine/units.hpp"
@@ -51,6 +52,7 @@ struct Metrics {
         double remaining_nm = 0; ///< largest thickness left over the floor
     };
     std::vector<Clearing> clearing;
+    Comparison comparison; ///< with what was measured
 
     /// The metric of that name (of that feature if given), or null.
     const Metric* find(const std::string& name, const std::string& feature = "") const;

@@ -62,7 +62,8 @@ void remove_earlier_run(const std::string& path) {
         if (error) throw OutputError(path + "/" + name, "cannot remove the file", error.message());
         remove_quietly(temporary(fs::path(path) / name)); // of a run that was killed
     }
-    remove_quietly((fs::path(path) / output_names::state).string());
+    for (const char* name : {output_names::state, output_names::comparison})
+        remove_quietly((fs::path(path) / name).string());
     const fs::path frames = fs::path(path) / output_names::frames;
     if (!fs::is_directory(frames, error)) return;
     for (const auto& entry : fs::directory_iterator(frames, error))

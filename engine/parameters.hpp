@@ -7,6 +7,7 @@
 #include <map>
 #include <optional>
 #include <string>
+#include <vector>
 
 namespace rille::engine {
 
@@ -32,6 +33,12 @@ struct Parameter {
     std::string source;
 };
 
+/// A parameter that no source settles: "materials.Si.etching.yield", illustrative or from memory.
+struct OpenParameter {
+    std::string name;
+    fluxes::Standing standing = fluxes::Standing::illustrative;
+};
+
 /// Reads cited values and counts them by standing.
 class ParameterReader {
 public:
@@ -42,10 +49,12 @@ public:
     /// The value alone, 0 if it could not be read.
     double value(const YamlNode*, const ParameterForm&, double otherwise = 0);
     const std::map<fluxes::Standing, int>& counts() const { return counts_; }
+    const std::vector<OpenParameter>& open() const { return open_; }
 
 private:
     Problems& problems_;
     std::map<fluxes::Standing, int> counts_;
+    std::vector<OpenParameter> open_;
 };
 
 } // namespace rille::engine
