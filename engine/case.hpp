@@ -2,7 +2,7 @@
 #pragma once
 
 #include "engine/measured.hpp"
-#include "engine/parameters.hpp"
+#include "engine/open_parameter.hpp"
 #include "engine/plasma.hpp"
 #include "fluxes/mechanism.hpp"
 #include "geometry/domain.hpp"

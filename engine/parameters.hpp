@@ -1,6 +1,7 @@
 // SPDX-License-Identifier: Apache-2.0
 #pragma once
 
+#include "engine/open_parameter.hpp"
 #include "engine/yaml_values.hpp"
 #include "fluxes/mechanism.hpp"
 
@@ -31,12 +32,6 @@ struct Parameter {
     std::optional<double> activation_ev;
     fluxes::Standing standing = fluxes::Standing::illustrative;
     std::string source;
-};
-
-/// A parameter that no source settles: "materials.Si.etching.yield", illustrative or from memory.
-struct OpenParameter {
-    std::string name;
-    fluxes::Standing standing = fluxes::Standing::illustrative;
 };
 
 /// Reads cited values and counts them by standing.

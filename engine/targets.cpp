@@ -2,6 +2,7 @@
 #include "engine/case.hpp"
 #include "engine/metrics.hpp"
 #include "engine/number_text.hpp"
+#include "engine/parameters.hpp"
 
 #include <algorithm>
 #include <cmath>
