@@ -44,4 +44,36 @@ int measure_command(const std::string& folder, const CommonOptions&);
 int report_command(const std::vector<std::string>& folders, bool figures, const CommonOptions&);
 int schema_command();
 
+/// What `rille study` understands beside the common options.
+struct StudyOptions {
+    std::string folder = "study";
+    int workers = 0; ///< 0 = as many as cores allow
+    bool plan_only = false;
+    bool force = false;
+    bool slurm = false;             ///< hand the points to a cluster
+    bool collect = false;           ///< only put together what is there
+    std::vector<std::string> retry; ///< statuses of points that are done again: "failed", "killed"
+};
+/// Some points of a study have failed, were killed, or are missing.
+constexpr int incomplete_status = 4;
+
+/// Runs what is missing of a study, and writes results, charts and report. `stop` ends it with what
+/// there is.
+int study_command(const std::string& file, const StudyOptions&, const CommonOptions&,
+                  const std::atomic<bool>& stop);
+/// A process that runs points for study_command; see engine/study/worker.hpp.
+int study_worker_command(const std::string& folder, int threads, std::atomic<bool>& stop);
+
+/// One task of a job array.
+struct StudyTask {
+    std::string round; ///< folder of the round of submission
+    std::size_t task = 0, points_per_task = 1;
+    int workers = 1;
+};
+int study_task_command(const std::string& folder, const StudyTask&, const CommonOptions&,
+                       const std::atomic<bool>& stop);
+/// The job after all tasks of a round: submits once more what was killed, and puts the results
+/// together.
+int study_collect_command(const std::string& folder, const std::string& round);
+
 } // namespace rille::engine
