@@ -3,6 +3,7 @@
 
 #include "engine/caution.hpp"
 #include "engine/study/results.hpp"
+#include "engine/study/study_effects.hpp"
 #include "engine/study/study_names.hpp"
 
 #include <filesystem>
@@ -69,7 +70,9 @@ bool all_targets_met(const std::string& folder) {
 
 } // namespace
 
-void write_study_pages(const std::string&, const Study&) {}
+void write_study_pages(const std::string& folder, const Study& study) {
+    write_study_effects(folder, study);
+}
 
 int conclude_study(const std::string& folder, const Study& study, const CommonOptions& options,
                    bool stopped) {
