@@ -2,8 +2,10 @@
 #include "engine/study_ending.hpp"
 
 #include "engine/caution.hpp"
+#include "engine/output_folder.hpp"
 #include "engine/report/study_page.hpp"
 #include "engine/study/results.hpp"
+#include "engine/study/study_effects.hpp"
 #include "engine/study/study_names.hpp"
 
 #include <filesystem>
@@ -70,7 +72,8 @@ bool all_targets_met(const std::string& folder) {
 
 } // namespace
 
-void write_study_pages(const std::string& folder, const Study&) {
+void write_study_pages(const std::string& folder, const Study& study) {
+    write_study_effects(folder, study);
     OutputFolder out(folder, OutputFolder::Existing::keep);
     write_study_report(out);
 }

@@ -120,13 +120,13 @@ void find_file(StudyReading& r, AxisValue& value) {
                        fmt::format("two different files are called {}; rename one", value.text));
 }
 
-bool is_end_of(const std::string& end, const std::string& path) {
+} // namespace
+
+bool ends_path(const std::string& end, const std::string& path) {
     return path == end ||
            (path.size() > end.size() &&
             path.compare(path.size() - end.size() - 1, end.size() + 1, "." + end) == 0);
 }
-
-} // namespace
 
 PathTarget find_path(const Entry& root, const std::string& path) {
     const Entry* entry = &root;
@@ -196,7 +196,7 @@ std::optional<std::size_t> find_column(const std::vector<StudyColumn>& columns,
     std::vector<std::string> labels;
     for (std::size_t c = 0; c < columns.size(); ++c) {
         if (columns[c].path == name) return c;
-        if (is_end_of(name, columns[c].path)) fitting.push_back(c);
+        if (ends_path(name, columns[c].path)) fitting.push_back(c);
         labels.push_back(columns[c].label);
     }
     if (fitting.size() == 1) return fitting[0];
@@ -217,7 +217,7 @@ void label_columns(std::vector<StudyColumn>& columns) {
             column.label = tail_of(column.path, count);
             const auto others =
                 std::count_if(columns.begin(), columns.end(), [&](const StudyColumn& other) {
-                    return is_end_of(column.label, other.path);
+                    return ends_path(column.label, other.path);
                 });
             if (others <= 1 || column.label == column.path) break;
         }

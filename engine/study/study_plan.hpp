@@ -4,6 +4,7 @@
 // What a study is made of between its file and its points; used by the study_*.cpp files only.
 
 #include "engine/case_build.hpp"
+#include "engine/csv_rows.hpp"
 #include "engine/study/study.hpp"
 
 #include <array>
@@ -113,6 +114,16 @@ void write_resolved(StudyReading&);
 std::optional<std::size_t> add_column(StudyReading&, const std::string& path, const Location&);
 /// Checks values by the rule of their column.
 void check_values(StudyReading&, std::size_t column, std::vector<AxisValue>&);
+/// Name and unit of a column of a table: "pressure [mTorr]", or pressure_mTorr as results are
+/// written. No unit where the cells hold it themselves.
+struct Heading {
+    std::string name, unit;
+};
+Heading heading_of(const std::string& text);
+/// Whether a name is a path or its end: "rf_bias.amplitude".
+bool ends_path(const std::string& name, const std::string& path);
+YamlNode cell_node(const CsvCell&, const std::string& unit);
+
 /// Keeps a file among the inputs of the study, each once; the name of its copy.
 std::string keep_input(Study&, const std::string& absolute_path);
 /// Absolute path of a table that the study names, kept among its inputs; a problem and nothing if

@@ -18,36 +18,6 @@ namespace {
 
 namespace fs = std::filesystem;
 
-struct Heading {
-    std::string name, unit; ///< "amplitude", "V"; unit empty where cells hold it themselves
-};
-
-/// "pressure [mTorr]"; also amplitude_V, as results are written.
-Heading heading_of(const std::string& text) {
-    const std::size_t open = text.find('['), line = text.rfind('_');
-    if (open == std::string::npos && line != std::string::npos && line > 0)
-        for (int d = 0; d <= static_cast<int>(Dimension::rate); ++d)
-            for (const UnitDefinition& unit : units_of(static_cast<Dimension>(d)))
-                if (text.substr(line + 1) == unit.text) return {text.substr(0, line), unit.text};
-    if (open == std::string::npos || text.back() != ']') return {trimmed(text), ""};
-    return {trimmed(text.substr(0, open)), trimmed(text.substr(open + 1, text.size() - open - 2))};
-}
-
-bool ends_path(const std::string& end, const std::string& path) {
-    return end == path ||
-           (path.size() > end.size() &&
-            path.compare(path.size() - end.size() - 1, end.size() + 1, "." + end) == 0);
-}
-
-YamlNode cell_node(const CsvCell& cell, const std::string& unit) {
-    YamlNode node;
-    node.kind = YamlNode::Kind::scalar;
-    node.at = cell.at;
-    node.text = cell.text;
-    if (!unit.empty() && unit != "1") node.text += " " + unit;
-    return node;
-}
-
 std::vector<AxisValue> column_values(const CsvRows& csv, std::size_t c, const std::string& unit) {
     std::vector<AxisValue> values;
     for (std::size_t row = 1; row < csv.rows.size(); ++row) {
@@ -231,6 +201,25 @@ void read_link(StudyReading& r, const std::string& path, const Entry& entry) {
 }
 
 } // namespace
+
+Heading heading_of(const std::string& text) {
+    const std::size_t open = text.find('['), line = text.rfind('_');
+    if (open == std::string::npos && line != std::string::npos && line > 0)
+        for (int d = 0; d <= static_cast<int>(Dimension::rate); ++d)
+            for (const UnitDefinition& unit : units_of(static_cast<Dimension>(d)))
+                if (text.substr(line + 1) == unit.text) return {text.substr(0, line), unit.text};
+    if (open == std::string::npos || text.back() != ']') return {trimmed(text), ""};
+    return {trimmed(text.substr(0, open)), trimmed(text.substr(open + 1, text.size() - open - 2))};
+}
+
+YamlNode cell_node(const CsvCell& cell, const std::string& unit) {
+    YamlNode node;
+    node.kind = YamlNode::Kind::scalar;
+    node.at = cell.at;
+    node.text = cell.text;
+    if (!unit.empty() && unit != "1") node.text += " " + unit;
+    return node;
+}
 
 std::optional<AxisValue> LinkedColumn::at(const AxisValue& key, std::string& reason) const {
     const bool by_number = key.number && keys[0].number;
