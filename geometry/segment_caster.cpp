@@ -18,15 +18,21 @@ constexpr double far_away = 1e300;
 // A ray below the highest point of the surface meets the period's highest point, or what lies in
 // front of it, within two images; more means that something is broken.
 constexpr int most_folds = 16;
+// Of the in-plane part of a unit direction.
+constexpr double least_square = 1e-24;
 
 double safe_inverse(double v) {
     if (std::fabs(v) > 1.0 / far_away) return 1.0 / v;
     return std::signbit(v) ? -far_away : far_away;
 }
 
-struct Pair {
-    double x, z;
-};
+/// x and z of a point or direction.
+using Pair [[gnu::vector_size(16)]] = double;
+
+inline double dot(const Pair& a, const Pair& b) {
+    const Pair product = a * b;
+    return product[0] + product[1];
+}
 
 /// Bit k: vertex k lies on the right of the ray through o along d; side: its cross product with d.
 /// `count` is even, x and z aligned to 16 bytes. Both ways give the same bits.
@@ -35,8 +41,8 @@ inline unsigned vertices_on_right(const double* x, const double* z, const Pair& 
                                   double positive, double* side) {
     unsigned right = 0;
 #ifdef __SSE2__
-    const __m128d ox = _mm_set1_pd(o.x), oz = _mm_set1_pd(o.z);
-    const __m128d dx = _mm_set1_pd(d.x), dz = _mm_set1_pd(d.z), limit = _mm_set1_pd(positive);
+    const __m128d ox = _mm_set1_pd(o[0]), oz = _mm_set1_pd(o[1]);
+    const __m128d dx = _mm_set1_pd(d[0]), dz = _mm_set1_pd(d[1]), limit = _mm_set1_pd(positive);
     for (int k = 0; k < count; k += 2) {
         const __m128d along = _mm_mul_pd(dx, _mm_sub_pd(_mm_load_pd(z + k), oz));
         const __m128d across = _mm_mul_pd(dz, _mm_sub_pd(_mm_load_pd(x + k), ox));
@@ -46,7 +52,7 @@ inline unsigned vertices_on_right(const double* x, const double* z, const Pair& 
     }
 #else
     for (int k = 0; k < count; ++k) {
-        side[k] = d.x * (z[k] - o.z) - d.z * (x[k] - o.x);
+        side[k] = d[0] * (z[k] - o[1]) - d[1] * (x[k] - o[0]);
         right |= static_cast<unsigned>(side[k] < positive) << k;
     }
 #endif
@@ -140,8 +146,8 @@ bool SegmentCaster::enter(Ray& ray) const {
     return true;
 }
 
-inline int SegmentCaster::content_at(const Ray& ray) const {
-    return content_[(ray.iz + 1) * next_z_ + (ray.ix + 1) * next_x_];
+inline int SegmentCaster::content_at(const Cell& cell) const {
+    return content_[(cell.z + 1) * next_z_ + (cell.x + 1) * next_x_];
 }
 
 /// Moves the ray from a cell to the next one.
@@ -190,15 +196,14 @@ bool SegmentCaster::cross_side(Ray& ray) const {
 
 /// Tests the runs of the ray's cell, of which `run` is the first.
 inline bool SegmentCaster::test_runs(const Ray& ray, const Run* run, Crossing& nearest) const {
-    constexpr unsigned segments = (1u << run_length) - 1;
     alignas(16) std::array<double, run_vertices> side;
     bool found = false;
     for (;; ++run) {
         const unsigned right =
-            vertices_on_right<run_vertices>(run->x.data(), run->z.data(), {ray.ox, ray.oz},
-                                            {ray.dx, ray.dz}, ray.positive, side.data());
+            vertices_on_right<run_vertices>(run->x.data(), run->z.data(), Pair{ray.ox, ray.oz},
+                                            Pair{ray.dx, ray.dz}, ray.positive, side.data());
         // From the gas the ray sees a segment's start on its right and its end on its left.
-        for (unsigned crossed = right & ~(right >> 1) & segments; crossed != 0;
+        for (unsigned crossed = right & ~(right >> 1) & run_segments; crossed != 0;
              crossed &= crossed - 1) {
             const int k = __builtin_ctz(crossed);
             found |= test_segment(ray, *run, k, side[k] / (side[k] - side[k + 1]), nearest);
@@ -213,8 +218,8 @@ inline bool SegmentCaster::test_segment(const Ray& ray, const Run& run, int k, d
                                         Crossing& nearest) const {
     const double x = run.x[k] + share * (run.x[k + 1] - run.x[k]);
     const double z = run.z[k] + share * (run.z[k + 1] - run.z[k]);
-    if (std::fabs((x - x_min_) * per_cell_x_ - (ray.ix + 0.5)) > 0.5 + 0.5 * cell_pad) return false;
-    if (std::fabs((z - z_min_) * per_cell_z_ - (ray.iz + 0.5)) > 0.5 + 0.5 * cell_pad) return false;
+    if (std::fabs((x - x_min_) * per_cell_x_ - (ray.ix + 0.5)) > 0.5 + hit_reach) return false;
+    if (std::fabs((z - z_min_) * per_cell_z_ - (ray.iz + 0.5)) > 0.5 + hit_reach) return false;
     const double way = (x - ray.ox) * ray.dx + (z - ray.oz) * ray.dz;
     if (way >= nearest.way) return false;
     const int element = run.element + k;
@@ -242,21 +247,6 @@ inline void SegmentCaster::finish_hit(const Ray& ray, const Crossing& at, Hit& h
     if (ray.flipped) hit.direction.x = -hit.direction.x;
 }
 
-/// Normal (not unit) of the segment at one end of `element`; at a mirror side its own image.
-std::array<double, 2> SegmentCaster::normal_beyond(int element, int end) const {
-    const int other = joined_[element][end];
-    const auto& s = ends_[other < 0 ? element : other];
-    return {other < 0 ? s[3] - s[1] : s[1] - s[3], s[2] - s[0]};
-}
-
-/// True where the segment beyond rises in front of `element`.
-bool SegmentCaster::concave_at(int element, int end) const {
-    const auto& own = ends_[element];
-    const std::array<double, 2> n = normal_beyond(element, end);
-    const double turn = (own[2] - own[0]) * -n[0] - (own[3] - own[1]) * n[1];
-    return end == 1 ? turn > 0 : turn < 0;
-}
-
 /// Whether a ray reaches the room in front of the element that it leaves. The margin is for rays
 /// along a straight wall, which round-off takes to either side of it.
 inline bool SegmentCaster::reaches_room(const Vec3& direction, const Start& start) const {
@@ -264,27 +254,6 @@ inline bool SegmentCaster::reaches_room(const Vec3& direction, const Start& star
     const double up = start.along_x * direction.z - start.along_z * direction.x;
     const double along = start.along_x * direction.x + start.along_z * direction.z;
     return up > (start.skyline[along > 0] + margin) * std::fabs(along);
-}
-
-/// A ray that starts, to round-off, in a concave joint and points into the other segment ends
-/// there. Which of the two segments its line crosses is then a matter of the last bit.
-bool SegmentCaster::starts_in_joint(const Vec3& origin, const Vec3& direction, int from,
-                                    Hit& hit) const {
-    const auto& own = ends_[from];
-    for (int end = 0; end < 2; ++end) {
-        if (std::fabs(own[2 * end] - origin.x) + std::fabs(own[2 * end + 1] - origin.z) > slack_)
-            continue;
-        const std::array<double, 2> n = normal_beyond(from, end);
-        if (!concave_[from][end] || n[0] * direction.x + n[1] * direction.z >= 0) continue;
-        const bool image = joined_[from][end] < 0;
-        hit.kind = Hit::Kind::surface;
-        hit.element = image ? from : joined_[from][end];
-        hit.point = origin;
-        hit.direction = direction;
-        if (image) hit.direction.x = -direction.x;
-        return true;
-    }
-    return false;
 }
 
 void SegmentCaster::finish_open(Ray& ray, Hit& hit) const {
@@ -297,13 +266,67 @@ void SegmentCaster::finish_open(Ray& ray, Hit& hit) const {
     if (ray.flipped) hit.direction.x = -hit.direction.x;
 }
 
-/// Ends a ray outside the grid: in the open above it, or lost.
-void SegmentCaster::leave_grid(Ray& ray, Hit& hit) const {
-    if (ray.iz >= nz_) finish_open(ray, hit);
+/// The cell beyond the edge of `room` that a ray from before or in it meets first.
+[[gnu::always_inline]] inline SegmentCaster::Cell
+SegmentCaster::cell_beyond(const Room& room, const Vec3& origin, const Vec3& direction) const {
+    const Pair o{origin.x, origin.z}, d{direction.x, direction.z};
+    const bool right = !std::signbit(d[0]), up = !std::signbit(d[1]);
+    const double tx = (room.x[right] - o[0]) * safe_inverse(d[0]);
+    const double tz = (room.z[up] - o[1]) * safe_inverse(d[1]);
+    const Pair at =
+        (o + std::min(tx, tz) * d - Pair{x_min_, z_min_}) * Pair{per_cell_x_, per_cell_z_};
+    const auto within = [](double v, const std::array<int, 2>& range) {
+        return std::min(std::max(static_cast<int>(v), range[0]), range[1]);
+    };
+    if (tx < tz) return {room.beyond.x[right], within(at[1], room.cells.z)};
+    return {within(at[0], room.cells.x), room.beyond.z[up]};
+}
+
+/// The shortcut that most rays from a surface take: across the room in front of the element, and
+/// into a segment behind it. Otherwise false; then `cell` is the one beyond the room, or stays.
+[[gnu::always_inline]] inline bool SegmentCaster::trace_across(const Vec3& origin,
+                                                               const Vec3& direction, int from,
+                                                               Hit& hit, Cell& cell) const {
+    const Pair o{origin.x, origin.z}, d{direction.x, direction.z};
+    const double square = dot(d, d);
+    if (!reaches_room(direction, starts_[from]) || !(square > least_square)) return false;
+    cell = cell_beyond(rooms_[starts_[from].room], origin, direction);
+    const int content = content_at(cell);
+    if (content < 0) return false;
+    const Run& run = runs_[content];
+    alignas(16) std::array<double, run_vertices> side;
+    const unsigned right =
+        vertices_on_right<run_vertices>(run.x.data(), run.z.data(), o, d, 0.0, side.data());
+    const unsigned crossed = right & ~(right >> 1) & run_segments;
+    if (crossed == 0 || (crossed & (crossed - 1)) != 0 || !run.last) return false;
+    const int k = __builtin_ctz(crossed);
+    const Pair a{run.x[k], run.z[k]}, b{run.x[k + 1], run.z[k + 1]};
+    const Pair point = a + side[k] / (side[k] - side[k + 1]) * (b - a);
+    const Pair off = (point - Pair{x_min_, z_min_}) * Pair{per_cell_x_, per_cell_z_} -
+                     Pair{cell.x + 0.5, cell.z + 0.5};
+    if (!(std::max(std::fabs(off[0]), std::fabs(off[1])) <= 0.5 + hit_reach)) return false;
+    const double way = dot(point - o, d);
+    if (!(way > 0 && way * way > slack_ * slack_ * square)) return false;
+    hit.kind = Hit::Kind::surface;
+    hit.element = run.element + k;
+    hit.distance = way / square;
+    hit.point = Vec3(std::min(std::max(point[0], x_min_), x_min_ + width_),
+                     origin.y + hit.distance * direction.y, point[1]);
+    return hit.element != from;
 }
 
 Hit SegmentCaster::trace(const Vec3& origin, const Vec3& direction, int from_element) const {
     Hit hit;
+    hit.direction = direction;
+    Cell cell = nowhere;
+    if (from_element < 0 || !trace_across(origin, direction, from_element, hit, cell))
+        trace_by_cells(origin, direction, from_element, cell, hit);
+    return hit;
+}
+
+/// From the cell `start`, or else from the one that holds the origin.
+void SegmentCaster::trace_by_cells(const Vec3& origin, const Vec3& direction, int from_element,
+                                   Cell start, Hit& hit) const {
     hit.kind = Hit::Kind::lost;
     hit.point = origin;
     hit.direction = direction;
@@ -313,40 +336,37 @@ Hit SegmentCaster::trace(const Vec3& origin, const Vec3& direction, int from_ele
     ray.dx = direction.x;
     ray.dz = direction.z;
     ray.square = direction.x * direction.x + direction.z * direction.z;
-    if (!(ray.square > 1e-24)) return hit; // along y: it meets nothing and never gets out
+    if (!(ray.square > least_square)) return; // along y: it meets nothing and never gets out
     ray.inverse_x = safe_inverse(ray.dx);
     ray.inverse_z = safe_inverse(ray.dz);
     ray.from = from_element;
-    int content;
-    if (from_element >= 0 && reaches_room(direction, starts_[from_element])) {
-        const Room& room = rooms_[starts_[from_element].room];
-        ray.ix = room.cells.x[!ray.rightwards()];
-        ray.iz = room.cells.z[!ray.upwards()];
-        cross_room(ray, room);
-        content = content_at(ray);
+    if (start.x != nowhere.x) {
+        ray.ix = start.x;
+        ray.iz = start.z;
     } else {
-        if (from_element >= 0 && starts_in_joint(origin, direction, from_element, hit)) return hit;
+        if (from_element >= 0 && starts_in_joint(origin, direction, from_element, hit)) return;
         if (!enter(ray)) {
             if (ray.dz > 0) finish_open(ray, hit);
-            return hit;
+            return;
         }
-        content = content_at(ray);
     }
     for (;;) {
+        const int content = content_at({ray.ix, ray.iz});
         if (content >= 0) {
             Crossing nearest;
             if (test_runs(ray, &runs_[content], nearest)) {
                 finish_hit(ray, nearest, hit);
-                return hit;
+                return;
             }
             cross_cell(ray);
         } else if (content != outside) {
             cross_room(ray, rooms_[-1 - content]);
-        } else if (ray.iz < 0 || ray.iz >= nz_ || !cross_side(ray)) {
-            leave_grid(ray, hit);
-            return hit;
+        } else if (ray.iz >= nz_) {
+            finish_open(ray, hit);
+            return;
+        } else if (ray.iz < 0 || !cross_side(ray)) {
+            return;
         }
-        content = content_at(ray);
     }
 }
 

@@ -36,6 +36,7 @@ private:
     /// Up to `run_length` consecutive elements of a chain: their vertices. Unused places repeat the
     /// last one. Two cache lines.
     static constexpr int run_length = 5, run_vertices = run_length + 1;
+    static constexpr unsigned run_segments = (1u << run_length) - 1; ///< one bit each
     struct alignas(64) Run {
         std::array<double, run_vertices> x, z;
         int element; ///< of the first two vertices
@@ -44,13 +45,20 @@ private:
     struct Rectangle { ///< of cells, limits inclusive: low, high
         std::array<int, 2> x, z;
     };
-    static constexpr double cell_pad = 1e-6;                         ///< [cells]
+    static constexpr double cell_pad = 1e-6; ///< [cells]
+    /// [cells] a cell lists what comes this close to it, and has hits a little less far away: a ray
+    /// then meets most walls in the first cell of theirs that it gets to.
+    static constexpr double list_reach = 0.25, hit_reach = list_reach - cell_pad;
     static constexpr int outside = -std::numeric_limits<int>::max(); ///< content beyond the grid
     /// A rectangle of empty cells, which a ray crosses in one step.
     struct alignas(64) Room {
         std::array<double, 2> x, z; ///< low, high [nm]
-        Rectangle cells;
+        Rectangle cells, beyond;    ///< in it; the next ones outside
     };
+    struct Cell {
+        int x, z;
+    };
+    static constexpr Cell nowhere{std::numeric_limits<int>::min(), 0};
     /// A ray that leaves an element more steeply than its skyline reaches `room` without meeting
     /// anything. Skyline: tangent of the elevation over the segment, for rays towards the start of
     /// the segment and for rays towards its end.
@@ -65,6 +73,8 @@ private:
     void choose_grid(const Surface&);
     int columns_that_fit(double wanted) const;
     std::vector<std::vector<int>> list_elements() const;
+    template <class Visit>
+    void visit_cells(int element, double pad, Visit) const;
     void fill_cells(const std::vector<std::vector<int>>& lists, const Surface&);
     Run make_run(int first, int count) const;
     void add_runs(const std::vector<int>& elements, const Surface&);
@@ -82,9 +92,12 @@ private:
     int column(double x) const; ///< x, z in cells
     int row(double z) const;
 
+    Cell cell_beyond(const Room&, const Vec3& origin, const Vec3& direction) const;
+    bool trace_across(const Vec3& origin, const Vec3& direction, int from, Hit&, Cell&) const;
+    void trace_by_cells(const Vec3& origin, const Vec3& direction, int from, Cell, Hit&) const;
     bool enter(Ray&) const;
     void fold_into_period(Ray&, double t) const;
-    int content_at(const Ray&) const;
+    int content_at(const Cell&) const;
     void cross_cell(Ray&) const;
     void cross_room(Ray&, const Room&) const;
     bool cross_side(Ray&) const;
@@ -93,7 +106,6 @@ private:
     bool counts_at_start(const Ray&, int element, double way) const;
     void finish_hit(const Ray&, const Crossing&, Hit&) const;
     void finish_open(Ray&, Hit&) const;
-    void leave_grid(Ray&, Hit&) const;
     std::array<double, 2> normal_beyond(int element, int end) const;
     bool concave_at(int element, int end) const;
     bool behind_at_start(int from, int element) const {

@@ -22,9 +22,9 @@ void SegmentCaster::choose_grid(const Surface& surface) {
     }
     RILLE_CHECK(z_open_ >= high, "the source plane lies below the top of the surface");
     const double n = static_cast<double>(surface.size());
-    // About eight cells a segment: a run of five fits what crosses a cell of a trench.
+    // About sixteen cells a segment: a run of five fits what a cell of a trench lists.
     const double area = width_ * (high - low + 1e-3 * length);
-    const double size = std::max(1.5 * length / n, std::sqrt(area / (8 * n)));
+    const double size = std::max(1.2 * length / n, std::sqrt(area / (16 * n)));
     nx_ = columns_that_fit(width_ / size);
     cell_x_ = width_ / nx_;
     // The grid ends exactly at the top: a ray that rises above it is free.
@@ -66,25 +66,34 @@ int SegmentCaster::row(double z) const {
     return std::clamp(static_cast<int>(std::floor(z)), 0, nz_ - 1);
 }
 
-/// The elements that cross each cell or pass within its padding, in ascending order.
+/// Visits the cells, grown by `pad` on all sides, that an element crosses.
+template <class Visit>
+void SegmentCaster::visit_cells(int element, double pad, Visit visit) const {
+    const auto& e = ends_[element];
+    const double half = 0.5 + pad;
+    const double ax = (e[0] - x_min_) * per_cell_x_, az = (e[1] - z_min_) * per_cell_z_;
+    const double bx = (e[2] - x_min_) * per_cell_x_, bz = (e[3] - z_min_) * per_cell_z_;
+    const double sx = bx - ax, sz = bz - az;
+    const double reach = half * (std::fabs(sx) + std::fabs(sz));
+    const int last_x = column(std::max(ax, bx) + pad), last_z = row(std::max(az, bz) + pad);
+    for (int iz = row(std::min(az, bz) - pad); iz <= last_z; ++iz)
+        for (int ix = column(std::min(ax, bx) - pad); ix <= last_x; ++ix) {
+            const double off = sx * (iz + 0.5 - az) - sz * (ix + 0.5 - ax);
+            if (std::fabs(off) <= reach) visit(static_cast<std::size_t>(iz) * nx_ + ix);
+        }
+}
+
+/// For each cell that holds an element, all those in reach of it, in ascending order. Cells are
+/// padded so that round-off in a ray's cell never hides a segment from it.
 std::vector<std::vector<int>> SegmentCaster::list_elements() const {
-    const double pad = cell_pad, half = 0.5 + pad;
     std::vector<std::vector<int>> lists(static_cast<std::size_t>(nx_) * nz_);
-    for (int e = 0; e < static_cast<int>(ends_.size()); ++e) {
-        const double ax = (ends_[e][0] - x_min_) * per_cell_x_;
-        const double az = (ends_[e][1] - z_min_) * per_cell_z_;
-        const double bx = (ends_[e][2] - x_min_) * per_cell_x_;
-        const double bz = (ends_[e][3] - z_min_) * per_cell_z_;
-        const double sx = bx - ax, sz = bz - az;
-        const double reach = half * (std::fabs(sx) + std::fabs(sz));
-        const int last_x = column(std::max(ax, bx) + pad), last_z = row(std::max(az, bz) + pad);
-        for (int iz = row(std::min(az, bz) - pad); iz <= last_z; ++iz)
-            for (int ix = column(std::min(ax, bx) - pad); ix <= last_x; ++ix) {
-                const double off = sx * (iz + 0.5 - az) - sz * (ix + 0.5 - ax);
-                if (std::fabs(off) <= reach)
-                    lists[static_cast<std::size_t>(iz) * nx_ + ix].push_back(e);
-            }
-    }
+    std::vector<char> holds(lists.size(), 0);
+    for (int e = 0; e < static_cast<int>(ends_.size()); ++e)
+        visit_cells(e, cell_pad, [&](std::size_t cell) { holds[cell] = 1; });
+    for (int e = 0; e < static_cast<int>(ends_.size()); ++e)
+        visit_cells(e, list_reach, [&](std::size_t cell) {
+            if (holds[cell]) lists[cell].push_back(e);
+        });
     return lists;
 }
 
@@ -100,7 +109,8 @@ void SegmentCaster::fill_cells(const std::vector<std::vector<int>>& lists, const
 SegmentCaster::Room SegmentCaster::room(const Rectangle& r) const {
     return {{x_min_ + r.x[0] * cell_x_, x_min_ + (r.x[1] + 1) * cell_x_},
             {z_min_ + r.z[0] * cell_z_, z_min_ + (r.z[1] + 1) * cell_z_},
-            r};
+            r,
+            {{r.x[0] - 1, r.x[1] + 1}, {r.z[0] - 1, r.z[1] + 1}}};
 }
 
 /// Splits a cell's elements, in ascending order, into runs that share vertices.

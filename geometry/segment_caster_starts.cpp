@@ -124,4 +124,40 @@ bool SegmentCaster::aim_at_gate(Start& start, int element, const Rectangle& cell
     return true;
 }
 
+/// Normal (not unit) of the segment at one end of `element`; at a mirror side its own image.
+std::array<double, 2> SegmentCaster::normal_beyond(int element, int end) const {
+    const int other = joined_[element][end];
+    const auto& s = ends_[other < 0 ? element : other];
+    return {other < 0 ? s[3] - s[1] : s[1] - s[3], s[2] - s[0]};
+}
+
+/// True where the segment beyond rises in front of `element`.
+bool SegmentCaster::concave_at(int element, int end) const {
+    const auto& own = ends_[element];
+    const std::array<double, 2> n = normal_beyond(element, end);
+    const double turn = (own[2] - own[0]) * -n[0] - (own[3] - own[1]) * n[1];
+    return end == 1 ? turn > 0 : turn < 0;
+}
+
+/// A ray that starts, to round-off, in a concave joint and points into the other segment ends
+/// there. Which of the two segments its line crosses is then a matter of the last bit.
+bool SegmentCaster::starts_in_joint(const Vec3& origin, const Vec3& direction, int from,
+                                    Hit& hit) const {
+    const auto& own = ends_[from];
+    for (int end = 0; end < 2; ++end) {
+        if (std::fabs(own[2 * end] - origin.x) + std::fabs(own[2 * end + 1] - origin.z) > slack_)
+            continue;
+        const std::array<double, 2> n = normal_beyond(from, end);
+        if (!concave_[from][end] || n[0] * direction.x + n[1] * direction.z >= 0) continue;
+        const bool image = joined_[from][end] < 0;
+        hit.kind = Hit::Kind::surface;
+        hit.element = image ? from : joined_[from][end];
+        hit.point = origin;
+        hit.direction = direction;
+        if (image) hit.direction.x = -direction.x;
+        return true;
+    }
+    return false;
+}
+
 } // namespace rille::geometry
