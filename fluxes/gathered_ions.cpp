@@ -11,13 +11,17 @@ namespace {
 constexpr int cells = 8192;
 constexpr int sines = 128, classes = 2 * sines;
 constexpr double small_bin = 1 / 1024.; ///< of the flux: half of the classes will do
+constexpr double light = 2e-4;          ///< of a bin: such classes join their neighbours
+constexpr int most_joined = 4;
 
 /// Of the nodes of one bin: by the sine of the angle out of the plane and the half of the bin.
 class Classes {
 public:
     Classes(const InPlane& plane, int bin)
-        : steps_(plane.share[bin + 1] - plane.share[bin] < small_bin ? sines / 2 : sines),
-          middle_(std::tan(0.5 * (plane.angle[bin] + plane.angle[bin + 1]))) {}
+        : middle_(std::tan(0.5 * (plane.angle[bin] + plane.angle[bin + 1]))) {
+        const double share = plane.share[bin + 1] - plane.share[bin];
+        steps_ = share < small_bin ? sines / 2 : sines;
+    }
     int of(const InPlane::Node& node) const {
         const double in_plane = node.cos_polar * node.cos_polar * (1 + node.slope * node.slope);
         const int step = static_cast<int>(std::sqrt(std::max(0.0, 1 - in_plane)) * steps_);
@@ -49,11 +53,28 @@ double AngleTable::operator()(double cosine) const {
 
 GatheredIons::GatheredIons(const InPlane& plane, const std::vector<double>& per_spectrum) {
     std::array<Ray, classes> sums{};
-    const auto close_bin = [&] {
-        for (Ray& sum : sums) {
-            if (sum.weight > 0)
-                rays_.push_back({sum.slope / sum.weight, sum.cos_polar / sum.weight, sum.weight});
-            sum = {};
+    const auto put = [&](Ray& sum) {
+        if (sum.weight > 0)
+            rays_.push_back({sum.slope / sum.weight, sum.cos_polar / sum.weight, sum.weight});
+        sum = {};
+    };
+    const auto close_bin = [&](double all) {
+        for (int half = 0; half < 2; ++half) {
+            Ray group{};
+            for (int step = 0, joined = 0; step < sines; ++step) {
+                Ray& sum = sums[2 * step + half];
+                if (sum.weight >= light * all || joined == most_joined) {
+                    put(group);
+                    joined = 0;
+                }
+                group.slope += sum.slope;
+                group.cos_polar += sum.cos_polar;
+                group.weight += sum.weight;
+                ++joined;
+                if (sum.weight >= light * all) joined = most_joined;
+                sum = {};
+            }
+            put(group);
         }
         first_.push_back(rays_.size());
     };
@@ -61,6 +82,7 @@ GatheredIons::GatheredIons(const InPlane& plane, const std::vector<double>& per_
     auto node = plane.nodes.begin();
     for (int bin = 0; bin + 1 < static_cast<int>(plane.angle.size()); ++bin) {
         const Classes by(plane, bin);
+        double all = 0;
         for (; node != plane.nodes.end() && node->bin == bin; ++node) {
             const double weight = node->weight * per_spectrum[node->spectrum];
             if (!(weight > 0)) continue;
@@ -68,8 +90,9 @@ GatheredIons::GatheredIons(const InPlane& plane, const std::vector<double>& per_
             sum.slope += weight * node->slope;
             sum.cos_polar += weight * node->cos_polar;
             sum.weight += weight;
+            all += weight;
         }
-        close_bin();
+        close_bin(all);
     }
 }
 
