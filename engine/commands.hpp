@@ -42,7 +42,8 @@ int measure_command(const std::string& folder, const CommonOptions&);
 /// Writes report.html into the folder of a run again; with `figures` also every figure as SVG and
 /// as PNG of 1920 x 1080 px into its folder `figures`.
 int report_command(const std::vector<std::string>& folders, bool figures, const CommonOptions&);
-int schema_command();
+/// The JSON Schema of a case file, or of a study file.
+int schema_command(bool of_study);
 
 /// What `rille study` understands beside the common options.
 struct StudyOptions {
