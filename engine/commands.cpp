@@ -12,6 +12,7 @@
 #include "engine/run.hpp"
 #include "engine/run_output.hpp"
 #include "engine/sheath_output.hpp"
+#include "engine/study/study_schema.hpp"
 
 #include <algorithm>
 #include <chrono>
@@ -193,8 +194,8 @@ int measure_command(const std::string& folder, const CommonOptions& options) {
     return 0;
 }
 
-int schema_command() {
-    std::cout << json_schema() << '\n';
+int schema_command(bool of_study) {
+    std::cout << (of_study ? study_json_schema() : json_schema()) << '\n';
     return 0;
 }
 

@@ -44,7 +44,8 @@ int measure_command(const std::string& folder, const CommonOptions&);
 /// 1920 x 1080 px into the folder `figures` beside it.
 int report_command(const std::vector<std::string>& folders, const std::string& place, bool figures,
                    const CommonOptions&);
-int schema_command();
+/// The JSON Schema of a case file, or of a study file.
+int schema_command(bool of_study);
 
 /// What `rille study` understands beside the common options.
 struct StudyOptions {

@@ -187,6 +187,8 @@ int dispatch(int argc, char** argv) {
     auto* report = app.add_subcommand("report", "Write the report of a run or a study again, or "
                                                 "show several runs side by side: one HTML file");
     auto* schema = app.add_subcommand("schema", "Print the JSON Schema of a case file");
+    bool of_study = false;
+    schema->add_flag("--study", of_study, "Of a study file instead");
     run->add_option("case", path, "Case file (YAML)")->type_name("FILE")->required();
     run->add_option("-o", folder, "Folder for the result")->type_name("DIR")->capture_default_str();
     run->add_flag("--force", force, "Replace what an earlier run left in the folder");
@@ -240,7 +242,7 @@ int dispatch(int argc, char** argv) {
     if (*sheath) return engine::sheath_command(path, sheath_folder, force, options);
     if (*measure) return engine::measure_command(folder, options);
     if (*report) return engine::report_command(folders, place, figures, options);
-    if (*schema) return engine::schema_command();
+    if (*schema) return engine::schema_command(of_study);
     quiet = options.quiet;
     std::signal(SIGINT, on_signal);
     std::signal(SIGTERM, on_signal);

@@ -164,7 +164,7 @@ void review_times(StudyReading& r) {
                                            [&](const auto& c) { return c.path == path; });
         if (step.end.kind == StepEnd::Kind::time && !is_varied)
             r.study.constants.push_back(
-                fmt::format("time of step {} stays {:.6g} s in every point, so depths differ",
+                fmt::format("time of step {} stays {:.6g} s in every point, so what it etches differs",
                             step.name, step.end.time_s));
     }
 }
