@@ -13,6 +13,7 @@
 #include "engine/run_output.hpp"
 #include "engine/sheath_output.hpp"
 
+#include <algorithm>
 #include <chrono>
 #include <ctime>
 #include <filesystem>
@@ -35,10 +36,10 @@ Case load(const std::string& path, const CommonOptions& options) {
 void check_measure_overrides(const std::vector<std::string>& overrides) {
     Problems problems;
     for (const std::string& text : overrides)
-        if (text.rfind("measure.", 0) != 0 && text.rfind("targets", 0) != 0)
+        if (text.rfind("measure", 0) != 0 && text.rfind("targets", 0) != 0)
             problems.add({"--set " + text, 0, 0}, "",
                          "a finished run can be measured differently, not run differently: "
-                         "measure.* and targets.* are allowed");
+                         "measure.*, measured.* and targets.* are allowed");
     problems.throw_if_any();
 }
 
@@ -95,6 +96,11 @@ int threads_in_use(const CommonOptions& options) {
                                : static_cast<int>(std::thread::hardware_concurrency());
 }
 
+bool all_met(const Metrics& metrics) {
+    return std::all_of(metrics.targets.begin(), metrics.targets.end(),
+                       [](const TargetVerdict& v) { return v.verdict == Verdict::met; });
+}
+
 /// Runs to the end with everything that is told and written on the way; the exit status.
 int follow(const Case& the_case, OutputFolder& folder, RunOutput& output,
            const CommonOptions& options, const std::atomic<bool>& stop,
@@ -115,7 +121,8 @@ int follow(const Case& the_case, OutputFolder& folder, RunOutput& output,
     else if (!options.quiet)
         std::cout << closing_text(the_case, result.record, metrics, folder.path());
     if (result.error) std::rethrow_exception(result.error);
-    return result.record.status == "interrupted" ? interrupted_status : 0;
+    if (result.record.status == "interrupted") return interrupted_status;
+    return options.require_targets && !all_met(metrics) ? goal_not_met_status : 0;
 }
 
 } // namespace

@@ -12,6 +12,9 @@ namespace rille::engine {
 /// What run_command returns when it was stopped before its end.
 constexpr int interrupted_status = 130;
 
+/// What run_command and resume_command return when targets are required and not all are met.
+constexpr int goal_not_met_status = 6;
+
 /// What every command understands.
 struct CommonOptions {
     std::vector<std::string> overrides; ///< "key.path=value"
@@ -19,7 +22,8 @@ struct CommonOptions {
     int threads = 0; ///< 0 = all cores
     bool quiet = false;
     bool json = false;
-    std::string command_line; ///< as typed, for the record
+    bool require_targets = false; ///< a target that is not met is goal_not_met_status
+    std::string command_line;     ///< as typed, for the record
 };
 
 /// Each command returns its exit status and throws InputError, OutputError, NumericsError.

@@ -85,7 +85,8 @@ int dispatch(int argc, char** argv) {
     CLI::App app("rille: the profile that a plasma etch leaves in a film stack");
     app.footer(
         std::string("Exit status: 0 done, 1 internal error, 2 usage, 3 bad input, 4 numerics, 5 "
-                    "file, 130 or 143 interrupted\nwith valid output. A film that did not clear is "
+                    "file, 6 a required target is not met, 130 or 143 interrupted\nwith valid "
+                    "output. A film that did not clear is "
                     "a result (0), unless its step says must_end.\n\n") +
         engine::caution);
     app.set_version_flag("--version", "rille " + engine::version() + " (" + engine::revision() +
@@ -134,6 +135,9 @@ int dispatch(int argc, char** argv) {
         add_common(*command, options);
     for (CLI::App* command : {run, sheath})
         add_seed(*command, options);
+    for (CLI::App* command : {run, resume})
+        command->add_flag("--require-targets", options.require_targets,
+                          "Exit with 6 unless every target is met; undecided is not met");
     for (CLI::App* command : {run, resume, sheath, report})
         command->add_flag("--quiet", options.quiet, "Print nothing but errors");
     try {

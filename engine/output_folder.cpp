@@ -67,8 +67,8 @@ void remove_earlier_run(const std::string& path) {
         if (error) throw OutputError(path + "/" + name, "cannot remove the file", error.message());
         remove_quietly(temporary(fs::path(path) / name)); // of a run that was killed
     }
-    remove_quietly((fs::path(path) / output_names::state).string());
-    remove_quietly((fs::path(path) / output_names::report).string());
+    for (const char* name : {output_names::state, output_names::comparison, output_names::report})
+        remove_quietly((fs::path(path) / name).string());
     const fs::path figures = fs::path(path) / output_names::figures;
     if (fs::is_directory(figures, error))
         for (const auto& entry : fs::directory_iterator(figures, error))

@@ -9,6 +9,8 @@ inline constexpr const char* record = "run.json";
 inline constexpr const char* history = "history.csv";
 inline constexpr const char* profile = "profile.csv";
 inline constexpr const char* metrics = "metrics.json";
+/// The measured contour against the front, where the case names one.
+inline constexpr const char* comparison = "comparison.csv";
 inline constexpr const char* series = "front.pvd";
 inline constexpr const char* level_set = "front.vdb";
 inline constexpr const char* picture_svg = "profile.svg";

@@ -38,6 +38,9 @@ struct PictureContext {
     std::vector<MaterialLook> looks;
 };
 
+/// Line of the measured contour.
+inline constexpr const char* measured_style =
+    "stroke=\"#b3006b\" stroke-width=\"1.8\" stroke-dasharray=\"7 3 2 3\"";
 /// Colour of front `index` of `count`, light to dark.
 std::string front_colour(std::size_t index, std::size_t count);
 /// "1.5 s", "40 s".

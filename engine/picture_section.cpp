@@ -256,6 +256,8 @@ void draw_section(Svg& svg, const View& v, const PictureContext& p) {
                                front_colour(f, p.fronts.size()),
                                f == 0 ? " stroke-dasharray=\"5 3\"" : ""));
     draw_front(svg, v, p.profile, "stroke=\"#000000\" stroke-width=\"2.2\"");
+    if (const auto& measured = p.c.measured.contour)
+        draw_front(svg, v, {{measured->points, {}, false}}, measured_style);
     svg.raw("</g>");
     svg.rect({v.left, v.top, v.width(), v.height()},
              "fill=\"none\" stroke=\"#555555\" stroke-width=\"0.8\"");

@@ -63,6 +63,8 @@ Metrics RunOutput::finish(const RunResult& result) {
     folder_.write(output_names::profile, profile_csv(case_, result.last));
     Metrics metrics = measure(case_, result.last);
     folder_.write(output_names::metrics, json_text(metrics_json(case_, metrics)));
+    if (!metrics.comparison.contours.empty())
+        folder_.write(output_names::comparison, comparison_csv(case_, metrics.comparison));
     if (result.write_level_set) folder_.write_with(output_names::level_set, result.write_level_set);
     if (result.record.status == "done" || result.record.status == "not cleared")
         folder_.remove(output_names::state);

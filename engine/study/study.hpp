@@ -17,6 +17,8 @@ struct StudyColumn {
     std::string label;      ///< shortest tail of the path that no other column has: "amplitude"
     std::string unit;       ///< as the values are shown: "V", "nm", "1" = a number; "" = words
     bool is_linked = false; ///< follows another column by a table
+    std::string follows;    ///< of a linked column: "follows amplitude by response.csv, row by row
+                            ///< within 0.01 %, not interpolated"
     bool is_logarithmic = false; ///< shown on a logarithmic axis
 };
 
@@ -75,7 +77,10 @@ struct Study {
     std::string title;
     std::string file;      ///< path of the study file
     std::string base_file; ///< path of the base case
-    Case base;             ///< the base case, nothing changed
+    /// The base case, nothing changed. Its `resolved_yaml` is the file as it was written (plasmas
+    /// that copy others still do, so that they follow what is varied) with the names of the copies
+    /// in `base.inputs`: written as base/case.yaml beside them it gives the same points.
+    Case base;
     std::vector<StudyColumn> columns;
     std::size_t points = 0;
     std::string plan; ///< "full grid", "latin hypercube", "sobol", "table"
@@ -94,12 +99,13 @@ struct Study {
     std::shared_ptr<const Plan> design;
 };
 
-/// Reads a study file, its base case and its tables. Throws InputError with every problem found:
-/// unknown paths, wrong units, values out of range, more than a million points, names that the
-/// answer uses and nothing has.
+/// Reads a study file, its base case and its tables. `overrides` ("key.path=value") change the base
+/// case. Throws InputError with every problem found: unknown paths, wrong units, values out of
+/// range, more than a million points, names that the answer uses and nothing has.
 Study load_study(const std::string& path, const std::vector<std::string>& overrides = {});
 
-/// Throws std::out_of_range for an index from `points` on.
+/// Points of a full grid: the last axis changes fastest, repeats faster still. Throws
+/// std::out_of_range for an index from `points` on.
 StudyPoint study_point(const Study&, std::size_t index);
 /// The overrides "key.path=value" that make the base case the case of a point.
 std::vector<std::string> point_overrides(const Study&, const StudyPoint&);
