@@ -36,7 +36,7 @@ while [ $((killed_workers + killed_studies)) -lt "$kills" ]; do
     pid=$!
     sleep "$(awk -v t=$((RANDOM % took)) 'BEGIN { print t / 1000 }')"
     mapfile -t workers < <(pgrep -P $pid)
-    if [ $((RANDOM % 2)) = 0 ] && [ ${#workers[@]} -gt 0 ]; then
+    if [ $((killed_workers < killed_studies)) = 1 ] && [ ${#workers[@]} -gt 0 ]; then
         kill -9 "${workers[RANDOM % ${#workers[@]}]}" 2>/dev/null &&
             killed_workers=$((killed_workers + 1))
         wait $pid || fail "the study has not survived its worker: status $?"
