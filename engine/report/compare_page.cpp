@@ -261,7 +261,7 @@ CompareReport compare_report(const std::vector<std::string>& folders,
                                  [](const ComparedRun& run) { return !run.outline.empty(); });
     if (any)
         report.figures.push_back(figure_of(overlay_of(runs), "The last profiles, to one scale."));
-    page.summary = "<div class=\"sides\">\n<div>\n" +
+    page.summary = "<div class=\"answer\">\n<div>\n" +
                    (any ? figure_html(report.figures[0])
                         : "<p class=\"outcome\">No run keeps a profile.</p>\n") +
                    "</div>\n<div>\n<h2>Runs</h2>\n" + names_html(runs) + verdicts_html(runs) +

@@ -209,15 +209,19 @@ private:
     void draw_titles(Svg& svg) {
         const double body = sheet_.size.body;
         const TextStyle middle = sheet_.body(Anchor::middle), end = sheet_.body(Anchor::end);
-        double last = -1e9;
-        for (std::size_t i = 0; i < map_.x_values.size(); ++i) {
+        double widest = 0; // labels at even distances, as many as keep apart
+        for (const std::string& label : map_.x_values)
+            widest = std::max(widest, text_width(shortened(label, middle, 12 * body), middle));
+        const auto every = static_cast<std::size_t>(std::max(
+            1.0, std::ceil((std::min(widest, std::max(cell_.width, 4 * body)) + 0.4 * body) /
+                           cell_.width)));
+        for (std::size_t i = 0; i < map_.x_values.size(); i += every) {
             const double at = plot_.x + (static_cast<double>(i) + 0.5) * cell_.width;
             const std::string label =
-                shortened(map_.x_values[i], middle, std::max(cell_.width, 4 * body));
+                shortened(map_.x_values[i], middle, std::max(cell_.width, 4 * body) - 0.3 * body);
             const double half = 0.5 * text_width(label, middle);
-            if (at - half < last + 0.4 * body || at + half > sheet_.width - 2) continue;
+            if (at + half > sheet_.width - 2 || at - half < 2) continue;
             svg.text(at, plot_.y + plot_.height + 1.3 * body, label, middle);
-            last = at + half;
         }
         double above = 1e9;
         for (std::size_t i = 0; i < map_.y_values.size(); ++i) {

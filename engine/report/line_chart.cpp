@@ -28,8 +28,8 @@ public:
                 if (drawable(chart.x, p.x) && drawable(chart.y, p.y))
                     lines_.back().points.push_back(&p);
             if (!line.name.empty())
-                legend_.push_back({line.name, lines_.back().look, line.is_joined,
-                                   line.has_markers || !line.is_joined, line.is_measured});
+                legend_.push_back({line.name, lines_.back().look, line.is_joined, has_marker(i),
+                                   line.is_measured});
         }
         lay(form);
     }
@@ -55,6 +55,17 @@ public:
 private:
     static bool drawable(const ChartAxis& axis, double value) {
         return std::isfinite(value) && (!axis.logarithmic || value > 0);
+    }
+
+    /// Whether a line has markers, or an unnamed one of its look has them for it.
+    bool has_marker(std::size_t index) const {
+        const auto& all = chart_.lines;
+        const ChartLine& line = all[index];
+        return line.has_markers || !line.is_joined ||
+               std::any_of(all.begin(), all.end(), [&](const ChartLine& other) {
+                   return other.name.empty() && other.has_markers && line.look &&
+                          other.look == line.look;
+               });
     }
 
     void lay(FigureForm form) {

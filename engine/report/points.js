@@ -172,7 +172,7 @@ const points = (() => {
             if (tests.every(passes => passes(row))) found.push(row);
         if (order.column !== null) found.sort(compare);
         element.querySelector(".count").textContent = found.length === rows
-            ? `${rows} points` : `${found.length} of ${rows} points`;
+            ? `${rows} point${rows === 1 ? "" : "s"}` : `${found.length} of ${rows} points`;
         frame.scrollTop = 0;
         draw();
     };

@@ -136,7 +136,7 @@ private:
                 static_cast<double>(std::max<std::size_t>(g.columns, room_height > 0 ? 1 : 3));
             g.scale_z = std::min((g.step_x - 0.8 * body) / extent_.width(),
                                  std::max(limit, 10.0) / extent_.height());
-            g.stretch = stretch_for(extent_.width() * g.scale_z, 3 * body);
+            g.stretch = stretch_for(extent_.width() * g.scale_z, 1.5 * body);
             g.scale_x = g.scale_z * g.stretch;
             g.width = extent_.width() * g.scale_x;
             g.height = extent_.height() * g.scale_z;

@@ -36,6 +36,8 @@ public:
         LineChart chart;
         const std::string title = view_.y_title() + " against " + x_.title;
         chart.text = view_.figure_text(id, slice.name.empty() ? title : title + ", " + slice.name);
+        if (view_.line)
+            chart.text.subtitle += " · one line for each " + view_.axes[*view_.line].title;
         chart.x = chart_axis(x_);
         chart.y.title = view_.y_title();
         chart.y.unit = view_.y_unit();

@@ -148,7 +148,9 @@ PageSection effects_section(const StudyParts& p) {
                 "<div>" +
                 figure_html(p.show("", chart, text_at(metrics.front(), "method")).figure) +
                 "</div>\n";
-        section.html += spans_html(metrics) + fits_html(effects);
+        section.html += fits_html(effects);
+        section.html += "<details><summary>Main effects on every quantity</summary>\n" +
+                        spans_html(metrics) + "</details>\n";
     } catch (const json::exception&) {
         section.html = "<p class=\"warning\">effects.json cannot be read.</p>\n";
     }

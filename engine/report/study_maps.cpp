@@ -10,7 +10,7 @@ namespace {
 
 using Role = StudyTableColumn::Role;
 
-constexpr std::size_t most_slices = 12, most_cells = 2500, most_on_axis = 60;
+constexpr std::size_t most_slices = 12, most_on_axis = 32;
 
 std::string axis_heading(const StudyAxis& axis) {
     return axis.unit.empty() ? axis.title : axis.title + " (" + axis.unit + ")";
@@ -62,18 +62,39 @@ void fill_verdict(const StudyView& view, const std::vector<std::size_t>& rows,
     }
 }
 
+/// The levels of an axis that a map shows, evenly chosen, and where each level stands among them.
+struct ShownLevels {
+    std::vector<std::string> labels;
+    std::vector<std::optional<std::size_t>> place; ///< of each level; empty: not shown
+};
+
+ShownLevels shown_levels(const StudyAxis& axis) {
+    ShownLevels shown;
+    const std::size_t count = axis.labels.size(), taken = std::min(count, most_on_axis);
+    shown.place.resize(count);
+    for (std::size_t i = 0; i < taken; ++i) {
+        const std::size_t level = taken == 1 ? 0 : i * (count - 1) / (taken - 1);
+        shown.place[level] = i;
+        shown.labels.push_back(axis.labels[level]);
+    }
+    return shown;
+}
+
 HeatMap map_of(const StudyView& view, const StudySlice& slice, const std::vector<std::size_t>& axes,
                const std::optional<std::size_t>& column, FillCell fill) {
     const StudyAxis& x = view.axes[axes[0]];
     const StudyAxis* y = axes.size() > 1 ? &view.axes[axes[1]] : nullptr;
     HeatMap map;
     map.x_title = axis_heading(x);
-    map.x_values = x.labels;
+    const ShownLevels across = shown_levels(x), up = y ? shown_levels(*y) : ShownLevels{{""}, {0}};
+    map.x_values = across.labels;
     map.y_title = y ? axis_heading(*y) : "";
-    map.y_values = y ? y->labels : std::vector<std::string>{""};
+    map.y_values = up.labels;
     std::vector<std::vector<std::size_t>> rows(map.x_values.size() * map.y_values.size());
-    for (const std::size_t row : slice.rows)
-        rows[(y ? y->level[row] : 0) * map.x_values.size() + x.level[row]].push_back(row);
+    for (const std::size_t row : slice.rows) {
+        const auto i = across.place[x.level[row]], j = up.place[y ? y->level[row] : 0];
+        if (i && j) rows[*j * map.x_values.size() + *i].push_back(row);
+    }
     for (std::size_t c = 0; c < rows.size(); ++c) {
         HeatCell cell;
         if (!rows[c].empty()) {
@@ -93,16 +114,17 @@ std::vector<std::pair<std::string, HeatMap>> all_maps(const StudyView& view, con
     std::vector<std::pair<std::string, HeatMap>> maps;
     const std::vector<std::size_t> axes = map_axes(view);
     if (axes.empty() || view.table.rows() == 0) return maps;
-    double cells = 1;
-    for (const std::size_t a : axes) {
-        if (view.axes[a].labels.size() > most_on_axis) return maps;
-        cells *= static_cast<double>(view.axes[a].labels.size());
-    }
-    if (cells > static_cast<double>(most_cells)) return maps;
+    std::string part;
+    for (const std::size_t a : axes)
+        if (view.axes[a].labels.size() > most_on_axis)
+            part += (part.empty() ? "" : ", ") + fmt::format("{} of {} values of {}", most_on_axis,
+                                                             view.axes[a].labels.size(),
+                                                             view.axes[a].title);
     for (const StudySlice& slice : study_slices(view, axes, most_slices)) {
         HeatMap map = map_of(view, slice, axes, column, fill);
         map.text = view.figure_text(maps.empty() ? id : id + "-" + std::to_string(maps.size() + 1),
                                     slice.name.empty() ? title : title + ", " + slice.name);
+        if (!part.empty()) map.text.notes.push_back("Shown: " + part + ".");
         maps.emplace_back(slice.name, std::move(map));
     }
     return maps;
@@ -144,7 +166,7 @@ std::vector<std::pair<std::string, HeatMap>> metric_maps(const StudyView& view,
                          metric_column, fill_value);
     for (auto& [name, map] : maps) {
         map.value_title = title + (unit.empty() || unit == "1" ? "" : " (" + unit + ")");
-        map.text.notes = {"± 95 % sampling error; grid error is not in it."};
+        map.text.notes.emplace_back("± 95 % sampling error; grid error is not in it.");
     }
     return maps;
 }
@@ -158,8 +180,9 @@ window_maps(const StudyView& view, const std::optional<std::size_t>& target_colu
         target_column ? "window-" + id_of(view.table.columns[*target_column].name) : "window";
     auto maps = all_maps(view, id, title, target_column, fill_verdict);
     for (auto& [name, map] : maps)
-        map.text.notes = {"Undecided: the error bar straddles the limit, or a parameter that "
-                          "governs the result is illustrative, from memory or out of its range."};
+        map.text.notes.emplace_back(
+            "Undecided: the error bar straddles the limit, or a parameter that governs the result "
+            "is illustrative, from memory or out of its range.");
     return maps;
 }
 

@@ -145,6 +145,7 @@ ProfileOutline panel_of(const StudyView& view, ProfileShelf& shelf, std::size_t 
     panel.note = panel.is_failed       ? view.status(row)
                  : panel.lines.empty() ? "no profile kept"
                  : value.empty()       ? view.status(row)
+                 : view.is_open(row)   ? "(" + value + unit_suffix(view.y_unit()) + ")"
                                        : value + unit_suffix(view.y_unit());
     return panel;
 }
@@ -223,6 +224,9 @@ std::vector<std::pair<std::string, ProfileRow>> profile_rows(const StudyView& vi
             if (along.size() > most_panels)
                 row.text.notes.push_back(std::to_string(most_panels) + " of " +
                                          std::to_string(along.size()) + " points are shown.");
+            if (std::any_of(points.begin(), points.end(),
+                            [&](const auto& point) { return view.is_open(point.second); }))
+                row.text.notes.emplace_back("In brackets: not cleared or clogged.");
             const bool any = std::any_of(row.panels.begin(), row.panels.end(),
                                          [](const ProfileOutline& p) { return !p.lines.empty(); });
             if (any) rows.emplace_back(name, std::move(row));

@@ -92,11 +92,16 @@ std::string change_table(const StudyView& view) {
             std::string name = view.line ? view.axes[*view.line].value_text(level) : "all";
             if (!slice.name.empty()) name += ", " + slice.name;
             Change change{name, curve_of(view, rows)};
-            if (change.curve.size() < 2 || changes.size() >= most_lines) continue;
-            starts.insert(change.curve.front().level);
-            ends.insert(change.curve.back().level);
-            changes.push_back(std::move(change));
+            if (change.curve.size() > 1) changes.push_back(std::move(change));
         }
+    }
+    const std::size_t all = changes.size(), every = (all + most_lines - 1) / most_lines;
+    for (std::size_t i = 0; every > 1 && i * every < all; ++i)
+        changes[i] = changes[i * every];
+    if (every > 1) changes.resize((all + every - 1) / every);
+    for (const Change& change : changes) {
+        starts.insert(change.curve.front().level);
+        ends.insert(change.curve.back().level);
     }
     // Where all lines begin and end at the same values, these stand in the head.
     const auto heading = [&](const std::set<std::size_t>& levels, const char* otherwise) {
@@ -104,7 +109,8 @@ std::string change_table(const StudyView& view) {
     };
     DataTable table;
     table.id = "change";
-    table.caption = view.y_title() + " over " + x.title;
+    table.caption = view.y_title() + " over " + x.title +
+                    (every > 1 ? fmt::format(", {} of {} lines", changes.size(), all) : "");
     table.columns = {{view.line ? view.axes[*view.line].title : "", false, "", true},
                      {heading(starts, "from"), true},
                      {heading(ends, "to"), true},
