@@ -83,12 +83,11 @@ std::string widths_figure(const RunParts& p, const Comparison& comparison) {
     if (chart.lines.empty()) return "";
     Figure figure;
     figure.id = chart.text.id;
-    figure.svg = chart_svg(chart, FigureForm::page);
-    figure.narrow = chart_svg(chart, FigureForm::narrow);
+    figure.svg = chart_svg(chart, FigureForm::narrow);
     figure.slide = chart_svg(chart, FigureForm::slide);
     figure.caption = "Walls of the measured contour against those of the final front, height by "
                      "height; comparison.csv has both.";
-    return p.show(figure);
+    return "<div class=\"charts\">\n" + p.show(figure) + "</div>\n";
 }
 
 } // namespace

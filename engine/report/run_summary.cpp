@@ -195,7 +195,7 @@ std::string outcome_html(const RunParts& p) {
                took + resume + "</p>";
     return "<p class=\"outcome failed\"><strong>Failed.</strong> " +
            escaped(record.value("failure", "no reason is recorded")) +
-           " Shown is the state before that;" + took + "</p>";
+           ". Shown is the state before that;" + took + "</p>";
 }
 
 std::string asked_html(const RunParts& p) {
@@ -269,7 +269,7 @@ std::string targets_html(const RunParts& p) {
              {word, "", "<span class=\"verdict " + word + "\">" + word + "</span>"}});
         const std::size_t but = v.reason.find(", but ");
         if (v.verdict != v.by_numbers && but != std::string::npos)
-            reasons.insert("Undecided while, " + v.reason.substr(but + 6));
+            reasons.insert("Undecided: " + v.reason.substr(but + 6));
         else if (!metric || !metric->value)
             reasons.insert(v.target + ": " + v.reason);
     }
