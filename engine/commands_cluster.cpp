@@ -2,6 +2,7 @@
 // What a study does with a Slurm cluster: submission, and the two commands that its jobs run.
 #include "engine/commands.hpp"
 
+#include "engine/output_folder.hpp"
 #include "engine/study/local_study.hpp"
 #include "engine/study/point_run.hpp"
 #include "engine/study/slurm_study.hpp"
@@ -70,7 +71,12 @@ int study_task_command(const std::string& folder, const StudyTask& task,
 
 int study_collect_command(const std::string& folder, const std::string& round) {
     const StudyAtWork work = open_study(folder);
-    std::cout << look_after_round(work.folder, work.study, round, cost_of(work.study)) << std::endl;
+    try {
+        std::cout << look_after_round(work.folder, work.study, round, cost_of(work.study))
+                  << std::endl;
+    } catch (const OutputError& error) { // some clusters let no job submit others
+        std::cout << error.what() << "\nwhat is missing was not submitted again" << std::endl;
+    }
     CommonOptions options;
     return conclude_study(work.folder, work.study, options, false);
 }

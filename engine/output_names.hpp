@@ -25,8 +25,8 @@ inline constexpr const char* frames = "frames";
 inline constexpr const char* inputs = "inputs"; ///< copies of the files that the case names
 /// Left while a run is not at its end: what `resume` takes up.
 inline constexpr const char* state = "state.bin";
-inline constexpr const char* all[] = {resolved_case, record,     history,    profile,
-                                      metrics,       series,     level_set,  picture_svg,
-                                      picture_png,   sheath_svg, sheath_png, report};
+inline constexpr const char* all[] = {resolved_case, record,     history,   profile,
+                                      metrics,       series,     level_set, picture_svg,
+                                      picture_png,   sheath_svg, sheath_png};
 
 } // namespace rille::engine::output_names

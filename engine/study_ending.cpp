@@ -2,6 +2,8 @@
 #include "engine/study_ending.hpp"
 
 #include "engine/caution.hpp"
+#include "engine/output_folder.hpp"
+#include "engine/report/study_page.hpp"
 #include "engine/study/results.hpp"
 #include "engine/study/study_effects.hpp"
 #include "engine/study/study_names.hpp"
@@ -72,6 +74,8 @@ bool all_targets_met(const std::string& folder) {
 
 void write_study_pages(const std::string& folder, const Study& study) {
     write_study_effects(folder, study);
+    OutputFolder out(folder, OutputFolder::Existing::keep);
+    write_study_report(out);
 }
 
 int conclude_study(const std::string& folder, const Study& study, const CommonOptions& options,

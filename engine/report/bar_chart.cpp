@@ -66,7 +66,7 @@ std::string chart_svg(const BarChart& chart, FigureForm form) {
     const BarRows rows = lay_rows(chart, sheet);
     const double count = static_cast<double>(std::max<std::size_t>(chart.bars.size(), 1));
     sheet = lay_sheet(chart.text, form, count * rows.row + frame_margins(sheet));
-    Range values;
+    DataRange values;
     values.add(0);
     for (const Bar& bar : chart.bars) {
         values.add(bar.value - bar.error);
@@ -84,7 +84,7 @@ std::string chart_svg(const BarChart& chart, FigureForm form) {
     across.title = chart.axis_title;
     across.from_zero = true;
     none.words = {""};
-    const PlotFrame frame = lay_frame(sheet, area, across, none, values, Range{});
+    const PlotFrame frame = lay_frame(sheet, area, across, none, values, DataRange{});
     Svg svg = start_sheet(sheet, chart.text);
     draw_frame(svg, sheet, frame);
     draw_rows(svg, chart, sheet, rows, frame);

@@ -72,7 +72,7 @@ void scale_of_words(AxisScale& scale, const ChartAxis& axis, std::size_t most) {
     }
 }
 
-void linear_range(AxisScale& scale, const ChartAxis& axis, Range data, bool to_ticks) {
+void linear_range(AxisScale& scale, const ChartAxis& axis, DataRange data, bool to_ticks) {
     if (!data.any) data = {true, 0, 1};
     double span = data.high - data.low;
     if (!(span > 1e-9 * std::max(std::fabs(data.high), std::fabs(data.low)))) {
@@ -88,7 +88,7 @@ void linear_range(AxisScale& scale, const ChartAxis& axis, Range data, bool to_t
         scale.high = 0;
 }
 
-void log_range(AxisScale& scale, const Range& data, bool to_ticks) {
+void log_range(AxisScale& scale, const DataRange& data, bool to_ticks) {
     const double low = data.any ? data.low : 1, high = data.any ? data.high : 10;
     const double widen = std::pow(std::max(high / low, 1.2), 0.05);
     scale.low = low / widen;
@@ -110,7 +110,7 @@ void log_range(AxisScale& scale, const Range& data, bool to_ticks) {
 
 } // namespace
 
-void Range::add(double value) {
+void DataRange::add(double value) {
     if (!std::isfinite(value)) return;
     low = any ? std::min(low, value) : value;
     high = any ? std::max(high, value) : value;
@@ -161,14 +161,15 @@ std::vector<double> log_ticks(double low, double high, std::size_t most) {
     return ticks;
 }
 
-AxisScale make_scale(const ChartAxis& axis, const Range& data, std::size_t most, bool to_ticks) {
+AxisScale make_scale(const ChartAxis& axis, const DataRange& data, std::size_t most,
+                     bool to_ticks) {
     AxisScale scale;
     scale.title = with_unit(axis.title, axis.unit);
     if (!axis.words.empty()) {
         scale_of_words(scale, axis, most);
         return scale;
     }
-    Range wanted = data;
+    DataRange wanted = data;
     for (const auto& end : {axis.from, axis.to})
         if (end) wanted.add(*end);
     scale.logarithmic = axis.logarithmic && (!wanted.any || wanted.low > 0);

@@ -40,7 +40,7 @@ double frame_margins(const Sheet& sheet) {
 }
 
 PlotFrame lay_frame(const Sheet& sheet, const Box& area, const ChartAxis& x, const ChartAxis& y,
-                    const Range& x_data, const Range& y_data, bool y_to_ticks) {
+                    const DataRange& x_data, const DataRange& y_data, bool y_to_ticks) {
     PlotFrame frame;
     const TextStyle style = sheet.body();
     frame.plot.y = area.y + title_room(sheet);

@@ -16,7 +16,7 @@ struct PlotFrame {
 /// Sets both axes into `area`; `y_to_ticks` moves the ends of y out to ticks. Room for the labels
 /// is taken from the area.
 PlotFrame lay_frame(const Sheet&, const Box& area, const ChartAxis& x, const ChartAxis& y,
-                    const Range& x_data, const Range& y_data, bool y_to_ticks = true);
+                    const DataRange& x_data, const DataRange& y_data, bool y_to_ticks = true);
 /// Grid, labels, titles and the frame itself.
 void draw_frame(Svg&, const Sheet&, const PlotFrame&);
 /// Height that the labels and titles of both axes take.

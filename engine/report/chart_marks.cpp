@@ -174,7 +174,7 @@ std::string section_path(const Section& section, const SectionView& view) {
     return data;
 }
 
-void add_extent(const Section& section, Range& x, Range& z) {
+void add_extent(const Section& section, DataRange& x, DataRange& z) {
     for (const SectionLine& line : section)
         for (const auto& p : line.points) {
             x.add(p[0]);

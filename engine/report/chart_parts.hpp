@@ -61,14 +61,14 @@ struct AxisScale {
 };
 
 /// The range of values seen so far.
-struct Range {
+struct DataRange {
     bool any = false;
     double low = 0, high = 0;
     void add(double value);
 };
 
 /// Fixes range, ticks and labels; `most` ticks. `to_ticks`: the ends are moved out to ticks.
-AxisScale make_scale(const ChartAxis&, const Range& data, std::size_t most, bool to_ticks);
+AxisScale make_scale(const ChartAxis&, const DataRange& data, std::size_t most, bool to_ticks);
 
 /// Path of a marker around the origin.
 std::string marker_path(int marker, double radius);
@@ -100,6 +100,6 @@ struct SectionView {
 };
 std::string section_path(const Section&, const SectionView&);
 /// Extent of a section; `any` false where it is empty.
-void add_extent(const Section&, Range& x, Range& z);
+void add_extent(const Section&, DataRange& x, DataRange& z);
 
 } // namespace rille::engine

@@ -238,7 +238,7 @@ private:
     }
 
     const HeatMap& map_;
-    Range values_;
+    DataRange values_;
     Sheet sheet_;
     Box plot_, cell_;
 };

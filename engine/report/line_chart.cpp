@@ -67,7 +67,7 @@ private:
         area.y += above + (above > 0 ? 4 : 0);
         area.height -= above + (above > 0 ? 4 : 0);
         area.width -= beside_ > 0 ? beside_ : sheet_.size.body;
-        Range x, y;
+        DataRange x, y;
         for (const DrawnLine& line : lines_)
             for (const ChartPoint* p : line.points) {
                 x.add(p->x);

@@ -55,7 +55,8 @@ std::string navigation(const Page& page) {
     if (page.sections.size() < 2) return "";
     std::string html = "<nav aria-label=\"Parts of this page\"><ul>\n";
     for (const PageSection& section : page.sections)
-        html += "<li><a href=\"#" + section.id + "\">" + escaped(section.title) + "</a></li>\n";
+        html += "<li><a href=\"#" + section.id + "\">" +
+                escaped(section.label.empty() ? section.title : section.label) + "</a></li>\n";
     return html + "</ul></nav>\n";
 }
 
@@ -143,7 +144,8 @@ std::string figure_html(const Figure& figure) {
     if (!figure.slide.empty())
         html += "<template>" + inline_svg(figure.slide, figure.id + "-slide") + "</template>\n";
     return html + figure.controls + "<figcaption>" + escaped(figure.caption) +
-           " <span class=\"tools\"><button type=\"button\" data-save=\"svg\">SVG</button> "
+           (figure.caption.empty() ? "" : " ") +
+           "<span class=\"tools\"><button type=\"button\" data-save=\"svg\">SVG</button> "
            "<button type=\"button\" data-save=\"png\">PNG 1920 × 1080</button></span>"
            "</figcaption>\n</figure>\n";
 }

@@ -12,6 +12,7 @@ struct PageSection {
     std::string title;
     std::string html;
     bool is_folded = false; ///< closed until it is asked for; open in print
+    std::string label{};    ///< in the navigation; empty: the title
 };
 
 /// JSON for the page's scripts: `rille.data(id)` gives it parsed.

@@ -11,7 +11,7 @@ namespace {
 
 /// Extent of everything that is drawn, with a little air.
 struct Extent {
-    Range x, z;
+    DataRange x, z;
     double width() const { return x.high - x.low; }
     double height() const { return z.high - z.low; }
 };
@@ -208,7 +208,7 @@ AxisScale exact_scale(const std::string& title, double low, double high, double 
     axis.unit = "nm";
     const auto most =
         static_cast<std::size_t>(std::clamp(std::fabs(end - start) / label_px, 2.0, 9.0));
-    const Range range{true, low, high};
+    const DataRange range{true, low, high};
     AxisScale scale = make_scale(axis, range, most, false);
     AxisScale exact = scale;
     exact.low = low;

@@ -3,7 +3,7 @@
 
 /* The slider through the moments of an etch: one group of the drawing is shown, and beside it what
    was measured then. */
-for (const slider of document.querySelectorAll(".slider")) {
+for (const slider of document.querySelectorAll(".slider[data-moments]")) {
     const moments = rille.data(slider.dataset.moments);
     const groups = slider.closest("figure").querySelectorAll("svg .moment");
     const input = slider.querySelector("input"), play = slider.querySelector(".play");

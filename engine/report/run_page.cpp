@@ -37,7 +37,7 @@ struct Frames {
     SurfaceState last;
     std::vector<PictureFront> fronts;
     std::string timeline;
-    std::vector<std::pair<double, std::string>> moments; ///< time [s] and recipe step
+    std::vector<HistoryRow> moments; ///< what is read off the surface at each
 };
 
 Frames read_frames(const Case& c, const std::vector<std::string>& files) {
@@ -49,7 +49,9 @@ Frames read_frames(const Case& c, const std::vector<std::string>& files) {
     for (std::size_t i = 0; i < chosen.size(); ++i) {
         const SurfaceState state = read_vtp(c, files[chosen[i]]);
         timeline.add(state);
-        frames.moments.emplace_back(state.time_s, state.step);
+        frames.moments.emplace_back();
+        frames.moments.back().time_s = state.time_s;
+        measure_row(c, state.surface, frames.moments.back());
         if (std::find(drawn.begin(), drawn.end(), i) != drawn.end())
             frames.fronts.push_back(
                 {state.time_s, vertical_section(c.domain, state.surface, section_y(c))});
@@ -58,40 +60,40 @@ Frames read_frames(const Case& c, const std::vector<std::string>& files) {
     return frames;
 }
 
-/// The row of the history at a time, or nothing.
-std::optional<std::size_t> row_at(const HistoryTable& history, double time_s) {
-    const std::vector<double>* times = history.find("time_s");
-    if (!times || times->empty()) return std::nullopt;
-    std::size_t nearest = 0;
-    for (std::size_t r = 1; r < times->size(); ++r)
-        if (std::fabs((*times)[r] - time_s) < std::fabs((*times)[nearest] - time_s)) nearest = r;
-    if (std::fabs((*times)[nearest] - time_s) > 1e-6 * std::max(1.0, time_s)) return std::nullopt;
-    return nearest;
+/// The recipe step that a time falls into, as the record has it; empty if it does not say.
+std::string step_at(const json& record, double time_s) {
+    if (!record.is_object()) return "";
+    for (const json& step : record.value("steps", json::array()))
+        if (time_s <= step.value("end_s", 0.0) * (1 + 1e-12)) return step.value("name", "");
+    return "";
+}
+
+std::string length_text(const std::optional<double>& nm) {
+    return nm ? rounded(*nm, 0.1) + " nm" : "none";
 }
 
 /// What is read beside the slider: [{time, step, values: [[label, text], ...]}, ...].
 json moments_json(const RunParts& p, const Frames& frames) {
     json moments = json::array();
-    const HistoryTable& history = p.folder.history;
-    for (const auto& [time_s, step] : frames.moments) {
+    for (const HistoryRow& row : frames.moments) {
         json values = json::array();
-        const auto row = row_at(history, time_s);
-        for (std::size_t f = 0; row && f < p.c.mask.openings.size() && f < 3; ++f) {
-            const std::string name = history_name(p.c, f);
-            const std::string of = p.c.mask.openings.size() > 1 ? name + ": " : "";
-            const auto add = [&](const std::string& label, const std::string& column) {
-                const std::vector<double>* found = history.find(name + "_" + column + "_nm");
-                if (found)
-                    values.push_back({of + label, std::isfinite((*found)[*row])
-                                                      ? rounded((*found)[*row], 0.1) + " nm"
-                                                      : "none"});
-            };
-            add("depth", "depth_centre");
-            for (const auto& place : p.c.cd_places)
-                add(place.first + " CD", "cd_" + column_name(place.first));
-            add("mask left", "mask_left");
+        for (std::size_t f = 0; f < std::min<std::size_t>(row.features.size(), 3); ++f) {
+            const FeatureRow& read = row.features[f];
+            const std::string of =
+                p.c.mask.openings.size() > 1 ? p.c.mask.openings[f].name + ": " : "";
+            values.push_back({of + "depth", length_text(read.depth_centre)});
+            for (const std::string& place : places_from_the_top(p.c)) {
+                const auto at = std::distance(p.c.cd_places.begin(), p.c.cd_places.find(place));
+                values.push_back(
+                    {of + place + " CD", length_text(at < static_cast<long>(read.cd.size())
+                                                         ? read.cd[at]
+                                                         : std::optional<double>())});
+            }
+            values.push_back({of + "mask left", length_text(read.mask_left)});
         }
-        moments.push_back({{"time", time_text(time_s)}, {"step", step}, {"values", values}});
+        moments.push_back({{"time", time_text(row.time_s)},
+                           {"step", step_at(p.folder.record, row.time_s)},
+                           {"values", values}});
     }
     return moments;
 }
@@ -105,7 +107,7 @@ std::string slider_html(std::size_t moments) {
 }
 
 PageSection time_section(const RunParts& p, const Frames& frames, Page& page) {
-    PageSection section{"over-time", "The profile over time", "", false};
+    PageSection section{"over-time", "The profile over time", "", false, "Over time"};
     if (frames.moments.size() < 2) return section;
     Figure figure;
     figure.id = "profile-over-time";
@@ -140,12 +142,10 @@ std::string summary_html(const RunParts& p, const Frames* frames) {
         warnings = fmt::format("<p class=\"warning\"><a href=\"#warnings\">{} warning{}</a></p>\n",
                                count, count == 1 ? "" : "s");
     return "<div class=\"sides first\">\n<div>\n" + picture_html(p, frames) + "</div>\n<div>\n" +
-           outcome_html(p) + warnings + "<h2>What came out</h2>\n" + results_html(p) +
-           "<h2>Targets</h2>\n" + targets_html(p) + "<h2>What it rests on</h2>\n" +
-           standing_html(p) + "<p class=\"caution\">" + escaped(caution) +
-           "</p>\n</div>\n</div>\n<section id=\"asked\" aria-labelledby=\"asked-title\">"
-           "<h2 id=\"asked-title\">What was asked</h2>\n" +
-           asked_html(p) + "</section>\n";
+           outcome_html(p) + warnings + "<div class=\"sides\"><div><h2>What came out</h2>\n" +
+           results_html(p) + "</div>\n<div><h2>What was asked</h2>\n" + asked_html(p) +
+           "</div></div>\n<h2>Targets</h2>\n" + targets_html(p) + "<h2>What it rests on</h2>\n" +
+           standing_html(p) + "<p class=\"caution\">" + escaped(caution) + "</p>\n</div>\n</div>\n";
 }
 
 } // namespace

@@ -41,6 +41,8 @@ PageSection warnings_section(const RunParts&);
 /// The final surface to be turned about; `full` only. Adds its mesh and script to the page.
 PageSection surface_section(const RunParts&, const SurfaceState& last, Page&);
 
+/// Names of the heights at which CDs are read, from the top down.
+std::vector<std::string> places_from_the_top(const Case&);
 /// "CD" for "cd" wherever it stands as a word of its own: "top CD".
 std::string metric_label(const std::string& name);
 /// A value with unit as shown: "60.1 nm", "88.5°", "2.7".

@@ -67,7 +67,7 @@ std::string count_text(double value) {
 } // namespace
 
 PageSection measured_section(const RunParts& p) {
-    PageSection section{"measured", "All that was measured", "", false};
+    PageSection section{"measured", "All that was measured", "", false, "Measured"};
     if (!p.folder.has_metrics) return section;
     const bool several = p.c.mask.openings.size() > 1;
     DataTable table;
@@ -110,11 +110,11 @@ PageSection case_section(const RunParts& p) {
             "<p>Every default is filled in; with the folder's <code>inputs/</code> it runs "
             "again.</p>\n<pre id=\"case-text\">" +
                 escaped_lines(p.c.resolved_yaml) + "</pre>\n",
-            true};
+            true, "Case"};
 }
 
 PageSection origin_section(const RunParts& p) {
-    PageSection section{"origin", "Where this comes from", "", false};
+    PageSection section{"origin", "Where this comes from", "", false, "Origin"};
     const json& r = p.folder.record;
     if (!r.is_object()) {
         section.html = "<p>The run left no record of its program and machine.</p>";
@@ -138,7 +138,7 @@ PageSection origin_section(const RunParts& p) {
     facts.add("Processor features", joined(machine.value("cpu_features", json::array())) +
                                         " (the same bits where these agree)");
     const json numerics = r.value("numerics", json::object());
-    facts.add("Grid", rounded(numerics.value("spacing_nm", 0.0)) + " nm, " +
+    facts.add("Grid", fmt::format("{:.4g} nm, ", numerics.value("spacing_nm", 0.0)) +
                           count_text(numerics.value("voxels", 0.0)) + " voxels, " +
                           count_text(numerics.value("surface_elements", 0.0)) +
                           " surface elements at the end");
@@ -178,7 +178,7 @@ PageSection warnings_section(const RunParts& p) {
                        "the uncertainty of the parameters: fit them to flat-film rates of your own",
                        "what is not modelled: charging, redeposition of by-products, gas-phase "
                        "collisions inside a feature"});
-    return {"warnings", "Warnings and limits", html, false};
+    return {"warnings", "Warnings and limits", html, false, "Warnings"};
 }
 
 } // namespace rille::engine

@@ -22,7 +22,7 @@ namespace {
 using nlohmann::json;
 
 std::string in_nm(double value) {
-    return rounded(value, 0) + " nm";
+    return fmt::format("{:.4g} nm", value);
 }
 
 std::string opening_text(const geometry::Opening& opening) {
@@ -91,7 +91,7 @@ std::string step_text(const RecipeStep& step) {
     default:
         text = "until " + step.end.film + " is cleared at ";
     }
-    text += step.end.at;
+    text += step.end.at == "open field" ? "the open field" : "the centre of " + step.end.at;
     if (step.no_longer_than_s > 0) text += ", at most " + time_text(step.no_longer_than_s);
     return text;
 }
@@ -128,20 +128,28 @@ DataTable::Cell value_cell(const Metric* m) {
     return cell;
 }
 
-std::string standing_bar(const std::vector<std::pair<std::string, int>>& counts, int total) {
+/// A bar of the counts; what it shows stands in words below it.
+std::string standing_bar(const std::vector<std::pair<std::string, int>>& counts) {
     static constexpr const char* fills[] = {"#1f7a6d", "#7a9cc6", "#f0c75a", "#e8a9a0"};
-    Svg bar(400, 14, "standing of the parameters");
-    double x = 0;
-    for (std::size_t i = 0; i < counts.size(); ++i) {
-        const double width = 400.0 * counts[i].second / total;
-        bar.rect({x, 0, width, 14},
-                 fmt::format("fill=\"{}\" stroke=\"#222222\" stroke-width=\"0.8\"", fills[i]));
-        x += width;
-    }
-    return "<div class=\"bar\">" + inline_svg(bar.finish(), "standing") + "</div>";
+    std::string html = "<div class=\"bar\" aria-hidden=\"true\">";
+    for (std::size_t i = 0; i < counts.size(); ++i)
+        if (counts[i].second > 0)
+            html += fmt::format("<span style=\"flex-grow: {}; background: {}\"></span>",
+                                counts[i].second, fills[i]);
+    return html + "</div>\n";
 }
 
 } // namespace
+
+std::vector<std::string> places_from_the_top(const Case& c) {
+    std::vector<std::string> names;
+    for (const auto& place : c.cd_places)
+        names.push_back(place.first);
+    std::stable_sort(names.begin(), names.end(), [&](const std::string& a, const std::string& b) {
+        return c.cd_places.at(a).z > c.cd_places.at(b).z;
+    });
+    return names;
+}
 
 std::string metric_label(const std::string& name) {
     std::string label = name;
@@ -203,13 +211,9 @@ std::string asked_html(const RunParts& p) {
     fact("Plasma", plasmas);
     fact("Chemistry",
          p.c.chemistry + fmt::format(", wafer at {:.4g} °C", p.c.wafer_temperature_k - 273.15));
-    html += "</dl>\n";
-    DataTable steps;
-    steps.id = "steps";
-    steps.columns = {{"step", false, "", true}, {"asked"}, {"came out"}};
     for (const RecipeStep& step : p.c.steps)
-        steps.rows.push_back({{step.name}, {step_text(step)}, {step_outcome(p, step.name)}});
-    return html + table_html(steps);
+        fact("Step " + step.name, step_text(step) + " → " + step_outcome(p, step.name));
+    return html + "</dl>\n";
 }
 
 std::string results_html(const RunParts& p) {
@@ -287,7 +291,7 @@ std::string standing_html(const RunParts& p) {
         counts.emplace_back(word, found == p.c.standing.end() ? 0 : found->second);
         total += counts.back().second;
     }
-    std::string html = total > 0 ? standing_bar(counts, total) : "";
+    std::string html = total > 0 ? standing_bar(counts) : "";
     html += "<p id=\"standing\">Of " + std::to_string(total) + " parameters: ";
     for (std::size_t i = 0; i < counts.size(); ++i)
         html += fmt::format("{}<b>{}</b> {}", i ? ", " : "", counts[i].second, counts[i].first);

@@ -16,7 +16,7 @@ namespace {
 using Points = std::vector<std::array<double, 2>>;
 
 constexpr double margin = 14, axis_room = 60, head = 58, foot = 88;
-constexpr double tallest = 430, widest = 270, narrowest = 150;
+constexpr double tallest = 450, widest = 290, narrowest = 120;
 constexpr double drawn_to = 0.08; ///< [px] a line may leave its points by
 
 double column_room(const Case& c) {
@@ -80,7 +80,7 @@ std::string subtitle_of(const Case& c, const std::string& when) {
     std::string text = when;
     if (!c.chemistry.empty()) text += " · " + c.chemistry;
     if (!c.domain.extruded()) text += " · section at y = " + rounded(section_y(c), 20) + " nm";
-    return text + " · spacing " + rounded(c.domain.spacing) + " nm";
+    return text + fmt::format(" · spacing {:.4g} nm", c.domain.spacing);
 }
 
 Section section_of(const Case& c, const SurfaceState& state) {

@@ -116,7 +116,8 @@
         });
     };
 
-    const start = {around: 0.6, above: 0.45, distance: 4.2};
+    const lens = 2.6; // the view is 2 / lens high at distance 1
+    const start = {around: 0.6, above: 0.45, distance: 1.12 * lens * Math.hypot(...half)};
     const eye = {...start};
     const slider = figure.querySelector(".cut");
 
@@ -125,7 +126,7 @@
         const [cb, sb] = [Math.cos(eye.above), Math.sin(eye.above)];
         /* x to the right, z up, seen from -y when nothing is turned. */
         const rows = [[ca, sa, 0], [-sa * sb, ca * sb, cb], [sa * cb, -ca * cb, sb]];
-        const lens = 2.6, aspect = width / height, near = 0.1, far = 40;
+        const aspect = width / height, near = 0.1, far = 40;
         const wide = aspect > 1 ? lens / aspect : lens, tall = aspect > 1 ? lens : lens * aspect;
         const depth = -(far + near) / (far - near), shift = -2 * far * near / (far - near);
         const view = new Float32Array(16);

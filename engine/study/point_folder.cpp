@@ -148,10 +148,12 @@ std::size_t clear_ended_points(const std::string& study_folder, bool all_ended) 
     std::error_code error;
     for (const auto& found : fs::directory_iterator(points, error)) {
         const PointEntry entry = read_point_entry(found.path().filename().string());
-        const bool ended = entry.kind == PointEntry::Kind::running &&
-                           (all_ended || (entry.host == here && !is_alive(entry.pid)));
-        const bool has_result = entry.kind == PointEntry::Kind::stopped &&
+        const bool is_here = entry.host == here;
+        const bool has_result = (entry.kind == PointEntry::Kind::stopped ||
+                                 (entry.kind == PointEntry::Kind::running && !is_here)) &&
                                 PointFolder::is_finished(study_folder, entry.point);
+        const bool ended = entry.kind == PointEntry::Kind::running &&
+                           (all_ended || (is_here && !is_alive(entry.pid)));
         if (ended || has_result) left.emplace_back(entry, found.path().string());
     }
     std::size_t count = 0;

@@ -50,8 +50,9 @@ struct PointEntry {
 PointEntry read_point_entry(const std::string& name);
 
 /// Looks after what ended processes have left in points/: a folder with a state is left to be taken
-/// up, others are removed. Of processes on other machines nothing is known; `all_ended` says that
-/// they have ended too. Returns how many there were.
+/// up, others are removed. Of processes on other machines nothing is known, so what they have of
+/// points without result stays; `all_ended` says that they have ended too. Returns how many there
+/// were.
 std::size_t clear_ended_points(const std::string& study_folder, bool all_ended = false);
 
 /// Number of finished points.

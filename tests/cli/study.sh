@@ -104,16 +104,28 @@ for signal in INT:130 TERM:143; do
     same_results whole stopped || fail "after $signal"
 done
 
-# A worker that is killed takes its point with it, here without another try.
+# A point that is told to stop saves its state, for whoever comes next.
 study_of kill 'slurm: {retries: {killed: 0}}'
 sed -i 's/spacing: 8/spacing: 1/; s/3 s}/30 s}/' kill/case.yaml
 sed -i 's/, 150 V, 200 V//' kill/study.yaml
+begun() { # begun POINT: waits until a worker has begun with it
+    for _ in $(seq 600); do ls -A killed/points 2>/dev/null | grep -q "^\.$1\..*[0-9]\$" && return; sleep 0.02; done
+    fail "point $1 is not begun"
+}
+"$rille" study kill/study.yaml -o killed --workers 1 >text 2>/dev/null &
+pid=$!
+begun 0001
+sleep 0.5
+kill -TERM $pid
+wait $pid
+[ $? = 143 ] && [ -s killed/points/.0001.stopped/state.bin ] || fail "no state: $(ls -A killed/points)"
+
+# A worker that is killed takes its point with it, here without another try.
 "$rille" study kill/study.yaml -o killed --workers 1 >text 2>errors &
 pid=$!
-for _ in $(seq 600); do ls -A killed/points 2>/dev/null | grep -q '^\.0001' && break; sleep 0.02; done
+begun 0001
 kill -9 "$(pgrep -P $pid)"
-sleep 0.2
-for _ in $(seq 600); do ls -A killed/points 2>/dev/null | grep -q '^\.0002' && break; sleep 0.02; done
+begun 0002
 kill -9 "$(pgrep -P $pid)"
 wait $pid
 status=$?

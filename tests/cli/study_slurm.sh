@@ -53,7 +53,6 @@ script=$out/slurm/0001/array_0.sh
 for words in '--partition=.main' '--array=0-2%2' '--mem=300M' '--signal=B:TERM@10' '--time=3' 'export SEEN=yes'; do
     grep -q -e "$words" "$script" || fail "$words: $(cat "$script")"
 done
-[ -z "$(ls "$out/slurm/0001" | grep %)" ] || fail "names of logs"
 # Asked again while it runs: nothing is submitted twice.
 study --slurm --quiet || fail "asked again: status $?"
 [ "$(ls "$out/slurm")" = 0001 ] || fail "submitted twice"
@@ -68,6 +67,7 @@ worker=${worker##*.}
 task=$(awk '/^PPid/ { print $2 }' "/proc/$worker/status") || fail "no worker to kill"
 kill -9 "$task" "$worker"
 wait_for_queue
+ls "$out"/slurm/0001/task_[0-9]*_0.log >/dev/null || fail "names of logs"
 [ "$(ls "$out/slurm" | tr '\n' ' ')" = "0001 0002 " ] || fail "rounds: $(ls "$out/slurm") $(cat "$out"/slurm/*/*.log)"
 [ "$(wc -l <"$out/slurm/0002/points.txt")" -le 2 ] || fail "more was tried again than was killed"
 grep -q '^[01]$' "$out/slurm/0002/points.txt" && fail "a point that failed was tried again"
