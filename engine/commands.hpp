@@ -39,9 +39,11 @@ int sheath_command(const std::string& case_path, const std::string& folder, bool
 /// Measures the last state that a run left in `folder` again, under the case kept there with the
 /// overrides given (`--set measure.cd.top=...`).
 int measure_command(const std::string& folder, const CommonOptions&);
-/// Writes report.html into the folder of a run again; with `figures` also every figure as SVG and
-/// as PNG of 1920 x 1080 px into its folder `figures`.
-int report_command(const std::vector<std::string>& folders, bool figures, const CommonOptions&);
+/// Writes report.html into the folder of a run or a study again; of several runs one that shows
+/// them side by side into the folder `place`. With `figures` also every figure as SVG and as PNG of
+/// 1920 x 1080 px into the folder `figures` beside it.
+int report_command(const std::vector<std::string>& folders, const std::string& place, bool figures,
+                   const CommonOptions&);
 /// The JSON Schema of a case file, or of a study file.
 int schema_command(bool of_study);
 

@@ -182,9 +182,10 @@ int dispatch(int argc, char** argv) {
     StudyCommands studies;
     studies.add(app);
     std::vector<std::string> folders;
+    std::string place = "comparison";
     bool figures = false;
-    auto* report = app.add_subcommand(
-        "report", "Write the report of a run into its folder again: one HTML file");
+    auto* report = app.add_subcommand("report", "Write the report of a run or a study again, or "
+                                                "show several runs side by side: one HTML file");
     auto* schema = app.add_subcommand("schema", "Print the JSON Schema of a case file");
     bool of_study = false;
     schema->add_flag("--study", of_study, "Of a study file instead");
@@ -203,9 +204,15 @@ int dispatch(int argc, char** argv) {
     resume->footer(engine::caution);
     measure->add_option("folder", folder, "Folder of a run")->type_name("DIR")->required();
     studies.add_words(path, folder);
-    report->add_option("folder", folders, "Folder of a run")->type_name("DIR")->required();
-    report->add_flag("--figures", figures,
-                     "Write each figure as SVG and as PNG of 1920 x 1080 into DIR/figures too");
+    report->add_option("folder", folders, "Folder of a run or a study; several runs: side by side")
+        ->type_name("DIR")
+        ->required();
+    report->add_option("-o", place, "Folder for the report on several runs")
+        ->type_name("DIR")
+        ->capture_default_str();
+    report->add_flag(
+        "--figures", figures,
+        "Write each figure as SVG and as PNG of 1920 x 1080 into the folder figures too");
     report->footer(engine::caution);
     for (CLI::App* command : {run, check, sheath, measure, studies.study})
         add_overrides(*command, options);
@@ -234,7 +241,7 @@ int dispatch(int argc, char** argv) {
     if (*check) return engine::check_command(path, options);
     if (*sheath) return engine::sheath_command(path, sheath_folder, force, options);
     if (*measure) return engine::measure_command(folder, options);
-    if (*report) return engine::report_command(folders, figures, options);
+    if (*report) return engine::report_command(folders, place, figures, options);
     if (*schema) return engine::schema_command(of_study);
     quiet = options.quiet;
     std::signal(SIGINT, on_signal);

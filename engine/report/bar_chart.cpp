@@ -42,9 +42,9 @@ void draw_rows(Svg& svg, const BarChart& chart, const Sheet& sheet, const BarRow
                  shortened(bar.name, style, rows.names), sheet.body(Anchor::end));
         svg.rect({std::min(zero, end), middle - half, std::fabs(end - zero), 2 * half},
                  "class=\"share\" fill=\"" + look.colour + "\"");
-        if (bar.error > 0) {
-            const double low = frame.x.px(bar.value - bar.error),
-                         high = frame.x.px(bar.value + bar.error), cap = 0.6 * half;
+        if (bar.upper() > bar.lower()) {
+            const double low = frame.x.px(bar.lower()), high = frame.x.px(bar.upper()),
+                         cap = 0.6 * half;
             svg.path(path_data({{low, middle}, {high, middle}}, false) +
                          path_data({{low, middle - cap}, {low, middle + cap}}, false) +
                          path_data({{high, middle - cap}, {high, middle + cap}}, false),
@@ -69,8 +69,9 @@ std::string chart_svg(const BarChart& chart, FigureForm form) {
     DataRange values;
     values.add(0);
     for (const Bar& bar : chart.bars) {
-        values.add(bar.value - bar.error);
-        values.add(bar.value + bar.error);
+        values.add(bar.value);
+        values.add(bar.lower());
+        values.add(bar.upper());
     }
     Box area = sheet.room;
     area.x += rows.names;

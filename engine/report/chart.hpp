@@ -117,6 +117,11 @@ struct Bar {
     double value = 0;
     double error = 0; ///< half-width of the error bar; 0 = none
     std::string text; ///< beside the bar: "62 %"
+    /// Ends of an error bar that is not even; `error` goes unused.
+    std::optional<double> low{}, high{};
+
+    double lower() const { return low.value_or(value - error); }
+    double upper() const { return high.value_or(value + error); }
 };
 
 /// Bars from zero, one a row, longest text first fitted.

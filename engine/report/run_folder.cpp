@@ -119,9 +119,10 @@ HistoryTable history_table(const std::string& csv) {
         table.names.push_back(name.text);
     table.values.resize(table.names.size());
     for (std::size_t r = 1; r < rows.rows.size(); ++r) {
-        if (rows.rows[r].size() != table.names.size()) continue;
+        const CsvRow& row = rows.rows[r]; // empty cells at its end may be missing
+        if (row.size() > table.names.size()) continue;
         for (std::size_t i = 0; i < table.names.size(); ++i)
-            table.values[i].push_back(number_or_nan(rows.rows[r][i].text));
+            table.values[i].push_back(number_or_nan(i < row.size() ? row[i].text : ""));
     }
     return table;
 }

@@ -165,6 +165,7 @@ RunReport run_report(const Case& c, const RunFolder& folder) {
     if (frames) {
         sections.push_back(time_section(parts, *frames, page));
         sections.push_back(surface_section(parts, frames->last, page));
+        sections.push_back(comparison_section(parts, compare_measured(c, frames->last)));
     }
     for (const auto make : {curves_section, arrivals_section, measured_section, cost_section,
                             warnings_section, case_section, origin_section})

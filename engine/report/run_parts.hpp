@@ -34,6 +34,8 @@ std::string standing_html(const RunParts&);
 PageSection arrivals_section(const RunParts&);
 PageSection curves_section(const RunParts&);
 PageSection measured_section(const RunParts&);
+/// The final front beside what the case names as measured.
+PageSection comparison_section(const RunParts&, const Comparison&);
 PageSection cost_section(const RunParts&);
 PageSection case_section(const RunParts&);
 PageSection origin_section(const RunParts&);

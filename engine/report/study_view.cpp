@@ -220,6 +220,7 @@ StudyView read_study_view(const std::string& folder) {
     std::error_code ignored;
     const bool has_results = fs::exists(fs::path(folder) / study_names::results, ignored);
     if (has_results || !view.manifest.is_object()) view.table = read_study_table(folder);
+    view.table.folder = folder;
     if (view.manifest.is_object()) {
         view.planned = view.manifest.value("points", std::size_t(0));
         view.plan = view.manifest.value("plan", "");

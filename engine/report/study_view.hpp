@@ -36,7 +36,7 @@ struct StudySlice {
 };
 
 struct StudyView {
-    StudyTable table;
+    StudyTable table;        ///< with the folder that it lies in
     nlohmann::json manifest; ///< study.json; null where it is missing
     std::string title, plan;
     std::size_t planned = 0; ///< points of the plan
