@@ -163,9 +163,9 @@ void review_times(StudyReading& r) {
         const bool is_varied = std::any_of(columns.begin(), columns.end(),
                                            [&](const auto& c) { return c.path == path; });
         if (step.end.kind == StepEnd::Kind::time && !is_varied)
-            r.study.constants.push_back(
-                fmt::format("time of step {} stays {:.6g} s in every point, so what it etches differs",
-                            step.name, step.end.time_s));
+            r.study.constants.push_back(fmt::format(
+                "time of step {} stays {:.6g} s in every point, so what it etches differs",
+                step.name, step.end.time_s));
     }
 }
 

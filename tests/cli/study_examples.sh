@@ -37,7 +37,7 @@ has "$plan" "warning: pressure of main varies while ion_flux and flux of Cl stay
 # Oracle: more bias sputters more of the sloped mask in the overetch of given length, so the line
 # loses more. Source: common practice, no source. Tolerance: the sampling errors.
 loss() {
-    "$rille" run "$bias/case.yaml" -o "run_$1" --quiet --set plasmas.main.rf_bias.amplitude="$1 V"
+    "$rille" run "$bias/case.yaml" -o "run_$1" --quiet --set "spacing=4 nm" --set plasmas.main.rf_bias.amplitude="$1 V"
     python3 -c "
 import json
 m = {x['name']: x for x in json.load(open('run_$1/metrics.json'))['metrics']}['top cd_loss']
@@ -54,7 +54,7 @@ printf 'format: 1\nbase: %s\nvary: {plasmas.main.rf_bais.amplitude: [1 V]}\n' "$
 status=0
 said=$("$rille" study bad.yaml -o bad 2>&1) || status=$?
 [ $status = 3 ] || fail "status $status for a path that does not exist"
-has "$said" 'bad.yaml:3:41: plasmas.main.rf_bais.amplitude: nothing is called "rf_bais" there; did you mean "rf_bias"?'
+has "$said" 'bad.yaml:3:40: plasmas.main.rf_bais.amplitude: nothing is called "rf_bais" there; did you mean "rf_bias"?'
 [ ! -e bad ] || fail "a refused study has written a folder"
 "$rille" schema --study | python3 -c "
 import json, sys
