@@ -1,9 +1,9 @@
 #!/usr/bin/env bash
 # SPDX-License-Identifier: Apache-2.0
 # Installs the Debian 12 packages of packages.txt that are missing, with `tests` those of
-# packages-tests.txt as well, and of packages-cluster.txt those that can be had: as root, else with sudo; else says what an administrator must run. Does
-# nothing, and needs no network, when all are there. A line `package command` is not needed where the
-# command is there already.
+# packages-tests.txt as well, and of packages-cluster.txt those that can be had: as root, else with
+# sudo; else says what an administrator must run. Does nothing, and needs no network, when all are
+# there. A line `package command` is not needed where the command is there already.
 #   bash .ci/install.sh [tests]
 set -euo pipefail
 here=$(cd "$(dirname "$0")" && pwd)
