@@ -1,6 +1,8 @@
 // SPDX-License-Identifier: Apache-2.0
 #pragma once
 
+#include "engine/measured.hpp"
+#include "engine/open_parameter.hpp"
 #include "engine/plasma.hpp"
 #include "fluxes/mechanism.hpp"
 #include "geometry/domain.hpp"
@@ -71,11 +73,14 @@ struct Case {
     std::vector<fluxes::IonReflection> reflection; ///< per material
     /// How many parameters of the mechanism are of each standing.
     std::map<fluxes::Standing, int> standing;
+    /// Those of the chemistry that are illustrative or from memory: what results stand on.
+    std::vector<OpenParameter> open_parameters;
     double wafer_temperature_k = 300;
     std::vector<RecipeStep> steps;
     std::map<std::string, Place> cd_places; ///< "top", "middle", "bottom"
     double frame_interval_s = 0;            ///< how often a frame is written; 0 = 10 frames a run
     std::vector<Target> targets;
+    MeasuredData measured;             ///< what the result is compared with
     std::vector<std::string> tool_log; ///< "key: value" kept with the result, not used
     std::uint64_t seed = 1;
     int rays_per_element = 64;

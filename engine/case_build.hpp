@@ -1,8 +1,9 @@
 // SPDX-License-Identifier: Apache-2.0
 #pragma once
 
-// Parts of the case loader, used by case_file.cpp only: each turns checked entries into a part of
-// the case and adds what is wrong between values. Parts that were reported already are skipped.
+// Parts of the case loader, used by case_file.cpp and the reader of studies: each turns checked
+// entries into a part of the case and adds what is wrong between values. Parts that were reported
+// already are skipped.
 
 #include "engine/case.hpp"
 #include "engine/entry.hpp"
@@ -12,8 +13,23 @@
 
 namespace rille::engine {
 
+/// Puts a value at a path of the document, which goes through keys and, in lists, through the
+/// `name` of the item; maps that may be left out are made on the way. Problems with it are placed
+/// where the value was written.
+void set_value(YamlNode& root, const std::string& path, YamlNode value, Problems&);
 /// Applies "key.path=value" to the document.
 void apply_overrides(YamlNode& root, const std::vector<std::string>& overrides, Problems&);
+
+/// What a document of a case says.
+struct BuiltCase {
+    Case result;
+    Entry root; ///< checked, defaults filled in
+};
+/// The case of a document whose overrides are applied; paths of files start in `folder`. Every
+/// problem is added; then parts of the case are missing. `with_arrivals` false: everything but what
+/// the ions do on their way through the sheath, which takes the time.
+BuiltCase build_case(YamlNode node, const std::string& name, const std::string& folder,
+                     bool with_arrivals, Problems&);
 /// Replaces `from: NAME` in plasmas by a copy of that plasma, with the keys given on top.
 void copy_plasmas(YamlNode& root, Problems&);
 /// Whether the value under this key of a plasma is the path of a file.
@@ -39,6 +55,8 @@ void build_recipe(const Entry& root, Case&, Problems&);
 /// into `root`.
 void build_measure(Entry& root, Case&, Problems&);
 void build_targets(const Entry& root, Case&, Problems&);
+/// Contour and CD table to compare with; after build_measure.
+void build_measured(const Entry& root, Case&, Problems&);
 /// The mechanism for the materials, ions and neutrals of the case; masses of the ions.
 void build_chemistry(const Entry& root, const std::string& folder, Case&, Problems&);
 /// What reaches the wafer, once species have masses: fluxes of neutrals that were given by density,

@@ -81,6 +81,7 @@ void build_chemistry(const Entry& root, const std::string& folder, Case& result,
     result.mechanism = std::move(chemistry->mechanism);
     result.reflection = std::move(chemistry->reflection);
     result.standing = std::move(chemistry->standing);
+    result.open_parameters = std::move(chemistry->open);
 }
 
 } // namespace rille::engine

@@ -33,50 +33,59 @@ void build_sampling(const Entry& root, Case& result, Problems& problems) {
     result.refresh_move = sampling["renew_after"].number;
 }
 
-Case build(YamlNode& node, const std::string& name, const std::string& folder,
+Case build(YamlNode node, const std::string& name, const std::string& folder,
            const std::vector<std::string>& overrides, Problems& problems) {
     if (!node.is_map()) problems.throw_if_any(); // a syntax error: there is nothing to check
     apply_overrides(node, overrides, problems);
-    copy_plasmas(node, problems);
-    absolute_files(node, folder);
-    apply_state_tables(node, problems);
-    if (node.at.file.empty()) node.at.file = name;
-    Entry root = check(node, case_rules(), problems);
-    Case result;
-    result.file = name;
-    if (root.is_good) {
-        build_domain(root, result, problems);
-        build_stack(root, result, problems);
-        build_mask(root, result, problems);
-        build_plasmas(root, result, problems);
-        build_recipe(root, result, problems);
-        build_measure(root, result, problems);
-        build_targets(root, result, problems);
-        build_sampling(root, result, problems);
-        build_chemistry(root, folder, result, problems);
-        build_arrivals(root, result, problems);
-    }
+    Case result = build_case(std::move(node), name, folder, true, problems).result;
     problems.throw_if_any();
-    result.shown_yaml = to_yaml(root);
-    keep_inputs(root, result);
-    result.resolved_yaml = to_yaml(root);
     return result;
 }
 
 } // namespace
 
+BuiltCase build_case(YamlNode node, const std::string& name, const std::string& folder,
+                     bool with_arrivals, Problems& problems) {
+    copy_plasmas(node, problems);
+    absolute_files(node, folder);
+    apply_state_tables(node, problems);
+    if (node.at.file.empty()) node.at.file = name;
+    BuiltCase built{{}, check(node, case_rules(), problems)};
+    Entry& root = built.root;
+    Case& result = built.result;
+    result.file = name;
+    if (!root.is_good) return built;
+    build_domain(root, result, problems);
+    build_stack(root, result, problems);
+    build_mask(root, result, problems);
+    build_plasmas(root, result, problems);
+    build_recipe(root, result, problems);
+    build_measure(root, result, problems);
+    build_measured(root, result, problems);
+    build_targets(root, result, problems);
+    build_sampling(root, result, problems);
+    build_chemistry(root, folder, result, problems);
+    if (with_arrivals) build_arrivals(root, result, problems);
+    if (!problems.empty()) return built;
+    result.shown_yaml = to_yaml(root);
+    Entry kept = root;
+    keep_inputs(kept, result);
+    result.resolved_yaml = to_yaml(kept);
+    return built;
+}
+
 Case parse_case(const std::string& text, const std::string& name, const std::string& folder,
                 const std::vector<std::string>& overrides) {
     Problems problems;
     YamlNode node = read_yaml_text(text, name, problems);
-    return build(node, name, folder, overrides, problems);
+    return build(std::move(node), name, folder, overrides, problems);
 }
 
 Case load_case(const std::string& path, const std::vector<std::string>& overrides) {
     Problems problems;
     YamlNode node = read_yaml_file(path, problems);
     const std::string folder = std::filesystem::path(path).parent_path().string();
-    return build(node, path, folder.empty() ? "." : folder, overrides, problems);
+    return build(std::move(node), path, folder.empty() ? "." : folder, overrides, problems);
 }
 
 } // namespace rille::engine

@@ -1,6 +1,8 @@
 // SPDX-License-Identifier: Apache-2.0
 #include "engine/case_build.hpp"
 
+#include "engine/comparison.hpp"
+#include "engine/metrics.hpp"
 #include "engine/words.hpp"
 
 #include <fmt/format.h>
@@ -122,26 +124,31 @@ void add_default_places(Entry& places, const Case& result) {
     add("bottom", fmt::format("{} above {} bottom", length, film.name));
 }
 
-/// A quantity that targets may name, and what it measures (nothing: a plain number).
-struct Measurable {
-    std::string name;
-    std::optional<Dimension> dimension;
-};
-
-std::vector<Measurable> measurable(const Entry& root, const Case& result) {
+std::vector<MetricName> names_with(const std::vector<std::string>& labels, const Case& c) {
     const Dimension length = Dimension::length, angle = Dimension::angle;
-    std::vector<Measurable> list;
-    for (const auto& [label, entry] : root["measure"]["cd"].members)
-        for (const char* kind : {" cd", " cd_change", " cd y", " cd area"})
-            if (result.domain.symmetry == geometry::Symmetry::full || kind[3] != ' ')
-                list.push_back({label + kind, length});
+    const bool is_full = c.domain.symmetry == geometry::Symmetry::full;
+    std::vector<MetricName> list;
+    for (const std::string& label : labels) {
+        for (const char* kind : {" cd", " cd_change"})
+            list.push_back({label + kind, length});
+        if (!is_full) list.push_back({label + " cd_loss", length});
+        for (const char* kind : {" cd y", " cd area"})
+            if (is_full) list.push_back({label + kind, length});
+    }
     for (const char* name : {"bow", "bow cd", "bow depth", "depth centre", "depth edge",
                              "microtrench depth", "undercut", "mask left"})
         list.push_back({name, length});
     for (const char* name : {"sidewall angle left", "sidewall angle right", "facet angle"})
         list.push_back({name, angle});
     list.push_back({"selectivity", std::nullopt});
-    for (const geometry::Film& film : result.films)
+    if (const auto& contour = c.measured.contour) {
+        const bool several = contour->cut_most > contour->cut_least;
+        for (const double cut : {contour->cut_least, contour->cut_most})
+            list.push_back({contour_metric(cut, several), length});
+    }
+    for (const MeasuredCd& cd : c.measured.cds)
+        list.push_back({cd.place + " cd difference", length});
+    for (const geometry::Film& film : c.films)
         if (film.name != "mask") list.push_back({film.name + " loss", length});
     return list;
 }
@@ -149,14 +156,14 @@ std::vector<Measurable> measurable(const Entry& root, const Case& result) {
 struct TargetReader {
     const Entry& entry;
     const std::string& metric; ///< as written; "NAME of OPENING" where there are several
-    const std::vector<Measurable>& known;
+    const std::vector<MetricName>& known;
     const std::vector<std::string>& openings;
     Problems& problems;
 
     void wrong(const std::string& message) { problems.add(entry.at, entry.path, message); }
 
     /// What the target is about; nullptr and a problem if there is no such quantity.
-    const Measurable* quantity() {
+    const MetricName* quantity() {
         std::string name = metric;
         const std::size_t of = metric.rfind(" of ");
         if (of != std::string::npos) {
@@ -169,7 +176,7 @@ struct TargetReader {
             }
         }
         std::vector<std::string> names;
-        for (const Measurable& one : known) {
+        for (const MetricName& one : known) {
             if (one.name == name) return &one;
             names.push_back(one.name);
         }
@@ -201,7 +208,7 @@ struct TargetReader {
         Target target;
         target.metric = metric;
         target.text = entry.text;
-        const Measurable* measured = quantity();
+        const MetricName* measured = quantity();
         if (!measured) return target;
         const std::optional<Dimension> due = measured->dimension;
         const std::string& text = entry.text;
@@ -254,8 +261,18 @@ void build_measure(Entry& root, Case& result, Problems& problems) {
     }
 }
 
+std::vector<MetricName> metric_names(const Case& c) {
+    std::vector<std::string> labels;
+    for (const auto& [label, place] : c.cd_places)
+        labels.push_back(label);
+    return names_with(labels, c);
+}
+
 void build_targets(const Entry& root, Case& result, Problems& problems) {
-    const std::vector<Measurable> known = measurable(root, result);
+    std::vector<std::string> labels; // also of heights that are wrong, which is said already
+    for (const auto& [label, entry] : root["measure"]["cd"].members)
+        labels.push_back(label);
+    const std::vector<MetricName> known = names_with(labels, result);
     const std::vector<std::string> openings = opening_names(result);
     for (const auto& [metric, entry] : root["targets"].members)
         if (entry.is_good)

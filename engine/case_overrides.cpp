@@ -90,35 +90,7 @@ void apply_override(YamlNode& root, const std::string& text, Problems& problems)
         problems.add(at, path, problem.message);
     if (!own.empty()) return;
     place_everywhere(value, at);
-    YamlNode* node = &root;
-    const Rule* rule = &case_rules();
-    std::string rest = path;
-    while (!rest.empty()) {
-        const std::string before = rest;
-        YamlNode* next = descend(*node, rest);
-        if (!next) break;
-        const std::size_t used = before.size() - rest.size() - (rest.empty() ? 0 : 1);
-        rule = rule_below(rule, before.substr(0, used));
-        node = next;
-    }
-    node = make_maps(node, rule, rest, at);
-    const bool new_key = !rest.empty() && rest.find('.') == std::string::npos &&
-                         (node->is_map() || node->is_empty());
-    if (rest.empty()) {
-        *node = std::move(value);
-    } else if (new_key) {
-        node->kind = YamlNode::Kind::map; // whether the key is known is checked with all the others
-        node->members.push_back({rest, at, std::move(value)});
-    } else {
-        const std::string first = rest.substr(0, rest.find('.'));
-        const std::vector<std::string> names = names_below(*node);
-        const std::string guess = did_you_mean(first, names);
-        problems.add(at, path,
-                     fmt::format("nothing is called {} there{}", quoted(first),
-                                 !guess.empty()  ? guess
-                                 : names.empty() ? ""
-                                                 : "; there are: " + listed(names)));
-    }
+    set_value(root, path, std::move(value), problems);
 }
 
 /// Puts a plasma together from the one it copies. `open` holds the names on the way, for loops.
@@ -179,17 +151,49 @@ void make_files_absolute(YamlNode& node, const std::string& folder) {
 } // namespace
 
 bool names_a_file(const std::string& key) {
-    static const char* const keys[] = {"file", "retarding_curve", "waveform", "cross_sections",
-                                       "table"};
+    static const char* const keys[] = {"file",  "retarding_curve", "waveform", "cross_sections",
+                                       "table", "contour",         "cd_table"};
     return std::find(std::begin(keys), std::end(keys), key) != std::end(keys);
+}
+
+void set_value(YamlNode& root, const std::string& path, YamlNode value, Problems& problems) {
+    const Location at = value.at;
+    YamlNode* node = &root;
+    const Rule* rule = &case_rules();
+    std::string rest = path;
+    while (!rest.empty()) {
+        const std::string before = rest;
+        YamlNode* next = descend(*node, rest);
+        if (!next) break;
+        const std::size_t used = before.size() - rest.size() - (rest.empty() ? 0 : 1);
+        rule = rule_below(rule, before.substr(0, used));
+        node = next;
+    }
+    node = make_maps(node, rule, rest, at);
+    const bool new_key = !rest.empty() && rest.find('.') == std::string::npos &&
+                         (node->is_map() || node->is_empty());
+    if (rest.empty()) {
+        *node = std::move(value);
+    } else if (new_key) {
+        node->kind = YamlNode::Kind::map; // whether the key is known is checked with all the others
+        node->members.push_back({rest, at, std::move(value)});
+    } else {
+        const std::string first = rest.substr(0, rest.find('.'));
+        const std::vector<std::string> names = names_below(*node);
+        const std::string guess = did_you_mean(first, names);
+        problems.add(at, path,
+                     fmt::format("nothing is called {} there{}", quoted(first),
+                                 !guess.empty()  ? guess
+                                 : names.empty() ? ""
+                                                 : "; there are: " + listed(names)));
+    }
+    set_paths(root, "");
 }
 
 void apply_overrides(YamlNode& root, const std::vector<std::string>& overrides,
                      Problems& problems) {
-    for (const std::string& text : overrides) {
+    for (const std::string& text : overrides)
         apply_override(root, text, problems);
-        set_paths(root, "");
-    }
 }
 
 void copy_plasmas(YamlNode& root, Problems& problems) {
@@ -206,7 +210,8 @@ void absolute_files(YamlNode& root, const std::string& folder) {
     const std::string text = chemistry ? chemistry->text : "";
     if (text.find('/') != std::string::npos || text.find(".yaml") != std::string::npos)
         make_absolute(chemistry, folder);
-    if (YamlNode* plasmas = root.find("plasmas")) make_files_absolute(*plasmas, folder);
+    for (const char* key : {"plasmas", "measured"})
+        if (YamlNode* part = root.find(key)) make_files_absolute(*part, folder);
 }
 
 } // namespace rille::engine

@@ -118,18 +118,33 @@ Rule recipe_rule() {
                     "what is done");
 }
 
+Rule measured_rule() {
+    return map_rule(
+        "measured",
+        {text_rule("contour", "CSV of a section: x_nm, z_nm or x_px, y_px (y down)"),
+         sentence_rule("scale", "X nm/px", "^[0-9.eE+-]+ *nm/px$",
+                       "size of a pixel of the contour"),
+         sentence_rule("origin", "X, Y px or X, Z nm", "^[^,]+,[^,]+(px|nm)$",
+                       "the point of the contour that lies on the feature's axis at the mask "
+                       "bottom as drawn; default 0, 0"),
+         quantity_rule("rotation", D::angle, {-180, 180}, "turns the contour anticlockwise"),
+         sentence_rule("cut_offset", "X or X to Y", "^[^ ].* *(nm|um|angstrom)$",
+                       "distance of the section from the axis of a hole"),
+         text_rule("feature", "opening that the contour shows; default: the first"),
+         text_rule("cd_table", "CSV: cd, mean_nm, sigma_nm, sites; with feature in front where "
+                               "there are several openings")},
+        "measured profile and CDs, laid over the result");
+}
+
 std::vector<Rule> later_rules() {
     const char* study = "studies over several runs come later; run one case, with --set for values";
-    const char* measured = "comparing with measured profiles comes later; leave it out";
     std::vector<Rule> rules = {
         later_rule("accuracy", "the spacing is not chosen for you; give spacing"),
-        later_rule("measured", measured),
-        later_rule("compare", measured),
         later_rule("layout", "mask layouts are not read; write mask.openings"),
         later_rule("start", "runs start from the fresh stack; leave it out"),
         later_rule("contour", "runs start from the fresh stack; leave it out"),
         later_rule("fit", "parameters are not fitted; leave it out")};
-    for (const char* key : {"base", "vary", "plan", "linked", "answer", "keep", "slurm"})
+    for (const char* key : {"base", "vary", "compare", "plan", "linked", "answer", "keep", "slurm"})
         rules.push_back(later_rule(key, study));
     return rules;
 }
@@ -182,7 +197,7 @@ Rule make_case_rules() {
                   .by_default("{}")},
              "what is measured beyond the standard list")
              .by_default("{}"),
-         targets,
+         targets, measured_rule(),
          map_rule("frames",
                   {quantity_rule("every", D::time, above_zero(),
                                  "time between two frames; default: ten frames a run")},

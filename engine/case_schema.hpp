@@ -13,5 +13,7 @@ const Rule& case_rules();
 
 /// That table as JSON Schema (draft 2020-12), for editors that complete and check.
 std::string json_schema();
+/// The same of any table of a file.
+std::string json_schema(const Rule&, const std::string& title);
 
 } // namespace rille::engine

@@ -211,6 +211,7 @@ private:
         for (std::size_t i = 0; i < chemistry.materials.size(); ++i)
             read_surface(reader, std::string(chemistry.materials[i]), chemistry.mechanism, true);
         count(reader.counts());
+        chemistry.open = reader.open();
         count(library_.common_standing);
     }
 

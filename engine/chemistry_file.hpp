@@ -2,6 +2,7 @@
 #pragma once
 
 #include "engine/materials_file.hpp"
+#include "engine/parameters.hpp"
 #include "engine/problems.hpp"
 #include "fluxes/mechanism.hpp"
 
@@ -37,6 +38,7 @@ struct Chemistry {
     fluxes::Mechanism mechanism;        ///< surfaces in the order of `materials`
     std::vector<fluxes::IonReflection> reflection;
     std::map<fluxes::Standing, int> standing; ///< parameters in use
+    std::vector<OpenParameter> open;          ///< those of them that no source settles
 };
 
 /// Reads a chemistry file and builds the mechanism. Species that the case does not use are left

@@ -8,10 +8,13 @@
 #include "engine/metrics.hpp"
 #include "engine/output_names.hpp"
 #include "engine/problems.hpp"
+#include "engine/report/run_page.hpp"
 #include "engine/run.hpp"
 #include "engine/run_output.hpp"
 #include "engine/sheath_output.hpp"
+#include "engine/study/study_schema.hpp"
 
+#include <algorithm>
 #include <chrono>
 #include <ctime>
 #include <filesystem>
@@ -34,10 +37,10 @@ Case load(const std::string& path, const CommonOptions& options) {
 void check_measure_overrides(const std::vector<std::string>& overrides) {
     Problems problems;
     for (const std::string& text : overrides)
-        if (text.rfind("measure.", 0) != 0 && text.rfind("targets", 0) != 0)
+        if (text.rfind("measure", 0) != 0 && text.rfind("targets", 0) != 0)
             problems.add({"--set " + text, 0, 0}, "",
                          "a finished run can be measured differently, not run differently: "
-                         "measure.* and targets.* are allowed");
+                         "measure.*, measured.* and targets.* are allowed");
     problems.throw_if_any();
 }
 
@@ -83,17 +86,10 @@ private:
 
 /// The latest frame in a run's folder. Throws OutputError if there is none.
 std::string last_frame(const std::string& folder) {
-    const std::filesystem::path frames = std::filesystem::path(folder) / output_names::frames;
-    std::string last;
-    std::error_code missing;
-    for (const auto& entry : std::filesystem::directory_iterator(frames, missing)) {
-        const std::string file = entry.path().string();
-        const bool later = file.size() != last.size() ? file.size() > last.size() : file > last;
-        if (entry.path().extension() == ".vtp" && later) last = file;
-    }
-    if (last.empty())
+    const std::vector<std::string> frames = frame_files(folder);
+    if (frames.empty())
         throw OutputError(folder, "looking for the frames of a run", "there are none here");
-    return last;
+    return frames.back();
 }
 
 int threads_in_use(const CommonOptions& options) {
@@ -101,8 +97,13 @@ int threads_in_use(const CommonOptions& options) {
                                : static_cast<int>(std::thread::hardware_concurrency());
 }
 
+bool all_met(const Metrics& metrics) {
+    return std::all_of(metrics.targets.begin(), metrics.targets.end(),
+                       [](const TargetVerdict& v) { return v.verdict == Verdict::met; });
+}
+
 /// Runs to the end with everything that is told and written on the way; the exit status.
-int follow(const Case& the_case, const std::string& folder, RunOutput& output,
+int follow(const Case& the_case, OutputFolder& folder, RunOutput& output,
            const CommonOptions& options, const std::atomic<bool>& stop,
            const std::function<RunResult(RunObserver&)>& go) {
     const std::string started = utc_now();
@@ -113,13 +114,16 @@ int follow(const Case& the_case, const std::string& folder, RunOutput& output,
     result.record.command = options.command_line;
     result.record.threads = threads_in_use(options);
     result.record.started = started;
+    folder.note(output_names::report); // written last, and the record lists it
     const Metrics metrics = output.finish(result);
+    write_run_report(folder, the_case);
     if (options.json)
         std::cout << metrics_json(the_case, metrics).dump(2) << '\n';
     else if (!options.quiet)
-        std::cout << closing_text(the_case, result.record, metrics, folder);
+        std::cout << closing_text(the_case, result.record, metrics, folder.path());
     if (result.error) std::rethrow_exception(result.error);
-    return result.record.status == "interrupted" ? interrupted_status : 0;
+    if (result.record.status == "interrupted") return interrupted_status;
+    return options.require_targets && !all_met(metrics) ? goal_not_met_status : 0;
 }
 
 } // namespace
@@ -130,7 +134,7 @@ int run_command(const std::string& case_path, const std::string& folder, bool fo
     OutputFolder out(folder,
                      force ? OutputFolder::Existing::force : OutputFolder::Existing::refuse);
     RunOutput output(out, the_case);
-    return follow(the_case, folder, output, options, stop,
+    return follow(the_case, out, output, options, stop,
                   [&](RunObserver& watcher) { return run_case(the_case, watcher, stop); });
 }
 
@@ -145,7 +149,7 @@ int resume_command(const std::string& folder, const CommonOptions& options,
     const Case the_case = load((fs::path(folder) / output_names::resolved_case).string(), options);
     const RunState state = read_state(the_case, read_file(path), path);
     RunOutput output(out, the_case, state.frames);
-    return follow(the_case, folder, output, options, stop, [&](RunObserver& watcher) {
+    return follow(the_case, out, output, options, stop, [&](RunObserver& watcher) {
         return resume_case(the_case, state, watcher, stop);
     });
 }
@@ -190,8 +194,8 @@ int measure_command(const std::string& folder, const CommonOptions& options) {
     return 0;
 }
 
-int schema_command() {
-    std::cout << json_schema() << '\n';
+int schema_command(bool of_study) {
+    std::cout << (of_study ? study_json_schema() : json_schema()) << '\n';
     return 0;
 }
 

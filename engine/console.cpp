@@ -36,12 +36,15 @@ Progress::Style Progress::style_for(int file_descriptor, bool quiet) {
 
 std::string Progress::line(const ProgressState& state, double elapsed) const {
     const double share = std::clamp(state.share, 0.0, 1.0);
-    std::string text =
-        fmt::format("{:3.0f} %  {} {:.1f} s", std::floor(100 * share), state.step, state.time_s);
-    if (state.depth_nm) text += fmt::format("  depth {:.1f} nm", *state.depth_nm);
+    std::string text = fmt::format("{:3.0f} %  ", std::floor(100 * share));
+    text +=
+        state.words.empty() ? fmt::format("{} {:.1f} s", state.step, state.time_s) : state.words;
+    if (state.depth_nm && state.words.empty())
+        text += fmt::format("  depth {:.1f} nm", *state.depth_nm);
     // A first guess from less than this would jump about.
     if (share >= 1) return text;
-    if (share > 0.005) text += "  left " + duration_text(elapsed * (1 - share) / share);
+    const double own = share - state.share_before;
+    if (own > 0.005) text += "  left " + duration_text(elapsed * (1 - share) / own);
     return text;
 }
 

@@ -17,6 +17,8 @@ struct ProgressState {
     double time_s = 0; ///< simulated
     std::string step;
     std::optional<double> depth_nm; ///< of the first feature
+    std::string words;              ///< shown instead of step, time and depth unless empty
+    double share_before = 0;        ///< done before this clock started: by an earlier start
 };
 
 /// Tells how a run goes on: a bar that renews itself on a terminal, a line now and then elsewhere,

@@ -198,6 +198,25 @@ void check_word(const YamlNode& node, const Rule& rule, Entry& entry, Problems& 
     entry.is_good = read_word(node, rule.words, problems).has_value();
 }
 
+/// The form that is written like the node; nullptr and a problem if there is none.
+const Rule* form_like(const YamlNode& node, const Rule& rule, Problems& problems) {
+    std::vector<std::string> forms;
+    for (const Rule& form : rule.members) {
+        const bool is_list = form.kind == Kind::list;
+        const bool is_map = form.kind == Kind::map || form.kind == Kind::dictionary ||
+                            form.kind == Kind::alternatives;
+        if (is_list ? node.is_list() : is_map ? node.is_map() : node.is_scalar()) return &form;
+        forms.push_back(is_list || is_map    ? due(form)
+                        : form.words.empty() ? "text"
+                                             : listed(form.words));
+    }
+    problems.add(
+        node.at, node.path,
+        fmt::format(node.is_empty() ? "has no value; {1} is due" : "{0} stands where {1} is due",
+                    what_it_is(node), listed(forms)));
+    return nullptr;
+}
+
 void check_structure(const YamlNode& node, const Rule& rule, Entry& entry, Problems& problems) {
     if (!is_structure(node, rule, problems)) return;
     entry.is_good = !node.is_damaged;
@@ -258,6 +277,9 @@ Entry check(const YamlNode& node, const Rule& rule, Problems& problems) {
         if (!is_structure(node, rule, problems)) break;
         if (const Rule* choice = alternative(node, rule, problems))
             return check(node, *choice, problems);
+        break;
+    case Kind::either:
+        if (const Rule* form = form_like(node, rule, problems)) return check(node, *form, problems);
         break;
     }
     return entry;

@@ -35,5 +35,9 @@ Entry check(const YamlNode&, const Rule&, Problems&);
 
 /// The entry as YAML, every default filled in, valid as input again.
 std::string to_yaml(const Entry&);
+/// A node on one line, as it may stand behind a key.
+std::string to_yaml(const YamlNode&);
+/// The entry without the values that were not written.
+Entry without_defaults(const Entry&);
 
 } // namespace rille::engine

@@ -116,4 +116,19 @@ std::string to_yaml(const Entry& entry) {
     return out;
 }
 
+std::string to_yaml(const YamlNode& node) {
+    return raw_yaml(node);
+}
+
+Entry without_defaults(const Entry& entry) {
+    Entry given = entry;
+    given.members.clear();
+    given.items.clear();
+    for (const auto& [key, value] : entry.members)
+        if (value.is_given) given.members.emplace_back(key, without_defaults(value));
+    for (const Entry& item : entry.items)
+        given.items.push_back(without_defaults(item));
+    return given;
+}
+
 } // namespace rille::engine

@@ -52,11 +52,9 @@ std::string line_of(const Case& c, const HistoryRow& row, bool header) {
     line.add("step_time_s", row.step_time_s);
     line.add("time_step_s", row.time_step_s);
     line.add_count("sub_steps", row.sub_steps);
-    for (std::size_t f = 0; f < c.mask.openings.size(); ++f) {
-        const std::string& name = c.mask.openings[f].name;
-        add_feature(line, c, name.empty() ? "opening" + std::to_string(f + 1) : column_name(name),
+    for (std::size_t f = 0; f < c.mask.openings.size(); ++f)
+        add_feature(line, c, history_name(c, f),
                     f < row.features.size() ? row.features[f] : FeatureRow());
-    }
     line.add("highest_rate_nm_per_min", row.highest_rate * seconds_per_minute);
     line.add("lowest_rate_nm_per_min", row.lowest_rate * seconds_per_minute);
     line.add_count("elements", row.elements);
@@ -70,6 +68,11 @@ std::string line_of(const Case& c, const HistoryRow& row, bool header) {
 }
 
 } // namespace
+
+std::string history_name(const Case& c, std::size_t opening) {
+    const std::string& name = c.mask.openings[opening].name;
+    return name.empty() ? "opening" + std::to_string(opening + 1) : column_name(name);
+}
 
 std::string history_csv(const Case& c, const std::vector<HistoryRow>& rows) {
     std::string text = line_of(c, HistoryRow(), true);

@@ -1,6 +1,7 @@
 // SPDX-License-Identifier: Apache-2.0
 #pragma once
 
+#include <cstddef>
 #include <cstdint>
 #include <optional>
 #include <string>
@@ -36,6 +37,9 @@ struct HistoryRow {
     std::uint64_t rays = 0;      ///< traced so far
     std::uint64_t lost_rays = 0; ///< lost so far
 };
+
+/// What the columns of an opening (index into Case::mask.openings) begin with.
+std::string history_name(const Case&, std::size_t opening);
 
 /// history.csv: one line a row, every column's unit at the end of its name (`_1` = dimensionless).
 std::string history_csv(const Case&, const std::vector<HistoryRow>&);

@@ -107,6 +107,7 @@ Json form_of(const Rule& rule) {
     case Kind::dictionary:
         return {{"type", "object"}, {"additionalProperties", schema_of(rule.members[0])}};
     case Kind::alternatives:
+    case Kind::either:
         break;
     }
     Json choices = Json::array();
@@ -124,11 +125,14 @@ Json schema_of(const Rule& rule) {
 
 } // namespace
 
-std::string json_schema() {
-    Json schema = {{"$schema", "https://json-schema.org/draft/2020-12/schema"},
-                   {"title", "rille case file"}};
-    schema.update(schema_of(case_rules()));
+std::string json_schema(const Rule& rules, const std::string& title) {
+    Json schema = {{"$schema", "https://json-schema.org/draft/2020-12/schema"}, {"title", title}};
+    schema.update(schema_of(rules));
     return schema.dump(2) + "\n";
+}
+
+std::string json_schema() {
+    return json_schema(case_rules(), "rille case file");
 }
 
 } // namespace rille::engine

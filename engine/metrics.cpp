@@ -103,13 +103,51 @@ private:
         add(name + " cd_change", "nm",
             "CD " + where +
                 " less the opening as drawn at the mask "
-                "bottom, full width along x; CD loss of the opening is minus this",
+                "bottom, full width along x; what an opening gains the lines beside it lose",
             change, absent);
+        if (c_.domain.extruded())
+            add(name + " cd_loss", "nm",
+                "mean over the lines left standing on both sides: width as drawn at the mask "
+                "bottom less full width along x " +
+                    where + "; beside a single opening the same as its cd_change",
+                cd_loss(place.z), "no line with walls on both sides at this height");
         if (!site_.round) return;
         add(name + " cd y", "nm", "full width along y " + where,
             geometry::cd_y_at(c_.domain, surface_, site_, place.z), absent);
         add(name + " cd area", "nm", "2 sqrt(area / pi) of the section " + where,
             geometry::cd_area_at(c_.domain, surface_, site_, place.z), absent);
+    }
+
+    /// Width of the line as drawn between this opening and the next one to the left (side -1) or
+    /// right (side 1), which may be an image beyond a side of the period, and the width of that
+    /// one.
+    std::optional<std::pair<double, double>> drawn_line(int side) const {
+        std::optional<std::pair<double, double>> nearest;
+        const double period = c_.domain.width_x(), own = side * site_.centre_x;
+        for (const FeatureSite& other : feature_sites(c_))
+            for (const double image : images_of(other.centre_x, period)) {
+                const double line = side * image - own - 0.5 * (other.width_x + site_.width_x);
+                if (line > 0 && (!nearest || line < nearest->first))
+                    nearest = {line, other.width_x};
+            }
+        return nearest;
+    }
+
+    std::vector<double> images_of(double x, double period) const {
+        if (c_.domain.sides == geometry::Sides::periodic) return {x, x - period, x + period};
+        return {x, -period - x, period - x}; // mirrored at -period / 2 and period / 2
+    }
+
+    std::optional<Measured> cd_loss(double z) const {
+        const auto lines = geometry::lines_at(c_.domain, surface_, site_, z);
+        const auto left = drawn_line(-1), right = drawn_line(1);
+        if (!lines || !left || !right) return {};
+        // A neighbour that is not etched down to this height leaves one wide line.
+        for (const auto& [now, drawn] :
+             {std::pair(lines->left.value, *left), std::pair(lines->right.value, *right)})
+            if (now > drawn.first + 0.5 * drawn.second) return {};
+        return shifted(combine(-0.5, lines->left, -0.5, lines->right),
+                       0.5 * (left->first + right->first));
     }
 
     /// The top CD place, or one cell below the mask bottom where the case names none.
@@ -305,6 +343,9 @@ Metrics measure(const Case& c, const SurfaceState& state) {
         const auto floor = geometry::floor_of(c.domain, state.surface, sites[f]);
         if (floor) find_clearing(c, c.mask.openings[f].name, *floor, result.clearing);
     }
+    result.comparison = compare_measured(c, state);
+    for (Metric& metric : comparison_metrics(result.comparison))
+        result.metrics.push_back(std::move(metric));
     result.targets = judge_targets(c, result);
     return result;
 }

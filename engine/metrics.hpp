@@ -1,8 +1,10 @@
 // SPDX-License-Identifier: Apache-2.0
 #pragma once
 
+#include "engine/comparison.hpp"
 #include "engine/history.hpp"
 #include "engine/run_result.hpp"
+#include "engine/units.hpp"
 #include "geometry/metrology.hpp"
 
 #include <nlohmann/json_fwd.hpp>
@@ -50,10 +52,19 @@ struct Metrics {
         double remaining_nm = 0; ///< largest thickness left over the floor
     };
     std::vector<Clearing> clearing;
+    Comparison comparison; ///< with what was measured
 
     /// The metric of that name (of that feature if given), or null.
     const Metric* find(const std::string& name, const std::string& feature = "") const;
 };
+
+/// A quantity that a case can be asked for by name.
+struct MetricName {
+    std::string name;
+    std::optional<Dimension> dimension; ///< empty: a plain number
+};
+/// Every name that targets and studies may use for this case; a metric has one value per opening.
+std::vector<MetricName> metric_names(const Case&);
 
 /// The feature sites of a case: its openings.
 std::vector<geometry::FeatureSite> feature_sites(const Case&);

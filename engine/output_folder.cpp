@@ -55,6 +55,11 @@ bool is_frame(const fs::path& path) {
     return name.extension() == ".vtp";
 }
 
+/// A drawing that a report has left as a file.
+bool is_figure(const fs::path& path) {
+    return path.extension() == ".svg" || path.extension() == ".png";
+}
+
 void remove_earlier_run(const std::string& path) {
     std::error_code error;
     for (const char* name : output_names::all) {
@@ -62,7 +67,12 @@ void remove_earlier_run(const std::string& path) {
         if (error) throw OutputError(path + "/" + name, "cannot remove the file", error.message());
         remove_quietly(temporary(fs::path(path) / name)); // of a run that was killed
     }
-    remove_quietly((fs::path(path) / output_names::state).string());
+    for (const char* name : {output_names::state, output_names::comparison, output_names::report})
+        remove_quietly((fs::path(path) / name).string());
+    const fs::path figures = fs::path(path) / output_names::figures;
+    if (fs::is_directory(figures, error))
+        for (const auto& entry : fs::directory_iterator(figures, error))
+            if (is_figure(entry.path())) remove_quietly(entry.path().string());
     const fs::path frames = fs::path(path) / output_names::frames;
     if (!fs::is_directory(frames, error)) return;
     for (const auto& entry : fs::directory_iterator(frames, error))

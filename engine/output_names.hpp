@@ -9,12 +9,16 @@ inline constexpr const char* record = "run.json";
 inline constexpr const char* history = "history.csv";
 inline constexpr const char* profile = "profile.csv";
 inline constexpr const char* metrics = "metrics.json";
+/// The measured contour against the front, where the case names one.
+inline constexpr const char* comparison = "comparison.csv";
 inline constexpr const char* series = "front.pvd";
 inline constexpr const char* level_set = "front.vdb";
 inline constexpr const char* picture_svg = "profile.svg";
 inline constexpr const char* picture_png = "profile.png";
 inline constexpr const char* sheath_svg = "sheath.svg";
 inline constexpr const char* sheath_png = "sheath.png";
+inline constexpr const char* report = "report.html";
+inline constexpr const char* figures = "figures"; ///< folder; what `report --figures` writes
 inline constexpr const char* sheath_csv = "sheath.csv";
 inline constexpr const char* sheath_tables = "distributions"; ///< folder
 inline constexpr const char* frames = "frames";

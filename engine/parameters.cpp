@@ -5,6 +5,7 @@
 
 #include <fmt/format.h>
 
+#include <algorithm>
 #include <vector>
 
 namespace rille::engine {
@@ -63,6 +64,12 @@ std::optional<Parameter> ParameterReader::read(const YamlNode* node, const Param
     map.finish();
     if (problems_.size() != before) return std::nullopt;
     ++counts_[p.standing];
+    const bool is_open =
+        p.standing == Standing::illustrative || p.standing == Standing::from_memory;
+    const bool is_new = std::none_of(open_.begin(), open_.end(), [&](const OpenParameter& known) {
+        return known.name == node->path; // a yield is read once for each ion
+    });
+    if (is_open && is_new) open_.push_back({node->path, p.standing});
     return p;
 }
 

@@ -1,12 +1,14 @@
 // SPDX-License-Identifier: Apache-2.0
 #pragma once
 
+#include "engine/open_parameter.hpp"
 #include "engine/yaml_values.hpp"
 #include "fluxes/mechanism.hpp"
 
 #include <map>
 #include <optional>
 #include <string>
+#include <vector>
 
 namespace rille::engine {
 
@@ -42,10 +44,12 @@ public:
     /// The value alone, 0 if it could not be read.
     double value(const YamlNode*, const ParameterForm&, double otherwise = 0);
     const std::map<fluxes::Standing, int>& counts() const { return counts_; }
+    const std::vector<OpenParameter>& open() const { return open_; }
 
 private:
     Problems& problems_;
     std::map<fluxes::Standing, int> counts_;
+    std::vector<OpenParameter> open_;
 };
 
 } // namespace rille::engine

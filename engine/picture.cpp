@@ -78,7 +78,7 @@ double draw_measured(Svg& svg, const PictureContext& p, double x, double y) {
     double at = y + heading(svg, x, y, "Measured");
     int rows = 0;
     for (const Metric& m : p.metrics.metrics) {
-        if (!m.value || m.name.find("cd_change") != std::string::npos) continue;
+        if (!m.value || m.name.find("cd_") != std::string::npos) continue;
         if (++rows > 22) {
             svg.text(x, at, "more in metrics.json",
                      {11, Anchor::start, false, "#555555", false, 0});
@@ -171,7 +171,13 @@ double draw_times(Svg& svg, const PictureContext& p, double x, double y) {
                                      : time_text(p.fronts[f].time_s) + (last ? " (end)" : ""),
                  {11.5, Anchor::start, last, "#222222", false, 0});
     }
-    return at + rows * 18.0 + 4 - y;
+    at += rows * 18.0;
+    if (p.c.measured.contour) {
+        svg.line(x, at - 4, x + 26, at - 4, measured_style);
+        svg.text(x + 36, at, "measured contour", {11.5, Anchor::start, false, "#222222", false, 0});
+        at += 18;
+    }
+    return at + 4 - y;
 }
 
 double draw_plan(Svg& svg, const PictureContext& p, double x, double y) {

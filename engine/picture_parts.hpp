@@ -38,6 +38,9 @@ struct PictureContext {
     std::vector<MaterialLook> looks;
 };
 
+/// Line of the measured contour.
+inline constexpr const char* measured_style =
+    "stroke=\"#b3006b\" stroke-width=\"1.8\" stroke-dasharray=\"7 3 2 3\"";
 /// Colour of front `index` of `count`, light to dark.
 std::string front_colour(std::size_t index, std::size_t count);
 /// "1.5 s", "40 s".
@@ -45,6 +48,15 @@ std::string time_text(double seconds);
 /// The 1-2-5 number nearest below `value`.
 double round_length(double value);
 
+/// Outline of the solid below the front as path data: open lines that run from side to side are
+/// closed along the bottom; with the even-odd rule voids stay empty and cut-off pieces filled.
+std::string solid_path(const View&, const Section&);
+/// The films of the stack as they were drawn, over the whole frame.
+void draw_films(Svg&, const View&, const PictureContext&);
+void draw_grown_films(Svg&, const View&, const PictureContext&);
+/// The front as a line; `style` holds the attributes of the stroke.
+void draw_front(Svg&, const View&, const Section&, const std::string& style);
+/// All of it with CD marks, angles and times.
 void draw_section(Svg&, const View&, const PictureContext&);
 void draw_depth_axis(Svg&, const View&);
 void draw_scale_bars(Svg&, const View&);

@@ -16,48 +16,8 @@ using Points = std::vector<std::array<double, 2>>;
 constexpr double thinnest_film_px = 1.6; // a grown film is never drawn thinner
 constexpr const char* mark_colour = "#7a1f5c";
 
-/// The solid below the front: open lines that run from side to side are closed along the bottom;
-/// with the even-odd rule voids stay empty and cut-off pieces filled.
-std::string solid_path(const View& v, const Section& section) {
-    std::string data;
-    const double middle = 0.5 * (v.x_min + v.x_max), deep = v.z_low - (v.z_high - v.z_low);
-    for (const SectionLine& line : section) {
-        Points points = line.points;
-        if (points.size() < 2) continue;
-        const bool from_left = points.front()[0] < middle, to_left = points.back()[0] < middle;
-        if (!line.closed && from_left != to_left) {
-            // The front may end half a cell short of the side; the solid does not.
-            const double first = from_left ? v.x_min : v.x_max;
-            const double last = to_left ? v.x_min : v.x_max;
-            points.insert(points.begin(), {first, points.front()[1]});
-            points.push_back({last, points.back()[1]});
-            points.push_back({last, deep});
-            points.push_back({first, deep});
-        }
-        for (auto& p : points)
-            p = v.at(p);
-        data += path_data(points, true);
-    }
-    return data;
-}
-
 std::string fill(const std::string& colour) {
     return "fill=\"" + colour + "\"";
-}
-
-void draw_films(Svg& svg, const View& v, const PictureContext& p) {
-    for (const geometry::Film& film : p.c.films) {
-        const bool topmost = &film == &p.c.films.front();
-        const double top = topmost ? v.z_high : std::min(film.top, v.z_high);
-        const double bottom = std::max(film.bottom, v.z_low);
-        if (top <= bottom) continue;
-        const Box band{v.left, v.y(top), v.width(), v.y(bottom) - v.y(top)};
-        const MaterialLook& look = p.looks.at(film.material);
-        svg.rect(band, fill(look.colour));
-        if (look.hatch) svg.rect(band, fmt::format("fill=\"url(#hatch{})\"", film.material));
-        svg.line(v.left, v.y(bottom), v.right(), v.y(bottom),
-                 "stroke=\"#000000\" stroke-opacity=\"0.35\" stroke-width=\"0.6\"");
-    }
 }
 
 /// Direction into the solid at each point of a section line, unit, in the section's plane.
@@ -120,25 +80,6 @@ void draw_grown_film(Svg& svg, const View& v, const PictureContext& p, const Sec
         depth[i] = inner_depth;
     }
     flush();
-}
-
-void draw_grown_films(Svg& svg, const View& v, const PictureContext& p) {
-    for (const SectionLine& line : p.profile) {
-        std::vector<double> depth(line.points.size(), 0);
-        for (std::size_t film = p.last.grown.material.size(); film-- > 0;)
-            draw_grown_film(svg, v, p, line, film, depth);
-    }
-}
-
-void draw_front(Svg& svg, const View& v, const Section& section, const std::string& style) {
-    std::string data;
-    for (const SectionLine& line : section) {
-        Points points = line.points;
-        for (auto& p : points)
-            p = v.at(p);
-        data += path_data(points, line.closed);
-    }
-    svg.path(data, "fill=\"none\" stroke-linejoin=\"round\" " + style);
 }
 
 /// Keeps labels apart: the first to ask for a place has it.
@@ -242,6 +183,63 @@ void draw_angle_labels(Svg& svg, const View& v, const PictureContext& p,
 
 } // namespace
 
+std::string solid_path(const View& v, const Section& section) {
+    std::string data;
+    const double middle = 0.5 * (v.x_min + v.x_max), deep = v.z_low - (v.z_high - v.z_low);
+    for (const SectionLine& line : section) {
+        Points points = line.points;
+        if (points.size() < 2) continue;
+        const bool from_left = points.front()[0] < middle, to_left = points.back()[0] < middle;
+        if (!line.closed && from_left != to_left) {
+            // The front may end half a cell short of the side; the solid does not.
+            const double first = from_left ? v.x_min : v.x_max;
+            const double last = to_left ? v.x_min : v.x_max;
+            points.insert(points.begin(), {first, points.front()[1]});
+            points.push_back({last, points.back()[1]});
+            points.push_back({last, deep});
+            points.push_back({first, deep});
+        }
+        for (auto& p : points)
+            p = v.at(p);
+        data += path_data(points, true);
+    }
+    return data;
+}
+
+void draw_films(Svg& svg, const View& v, const PictureContext& p) {
+    for (const geometry::Film& film : p.c.films) {
+        const bool topmost = &film == &p.c.films.front();
+        const double top = topmost ? v.z_high : std::min(film.top, v.z_high);
+        const double bottom = std::max(film.bottom, v.z_low);
+        if (top <= bottom) continue;
+        const Box band{v.left, v.y(top), v.width(), v.y(bottom) - v.y(top)};
+        const MaterialLook& look = p.looks.at(film.material);
+        svg.rect(band, fill(look.colour));
+        if (look.hatch) svg.rect(band, fmt::format("fill=\"url(#hatch{})\"", film.material));
+        svg.line(v.left, v.y(bottom), v.right(), v.y(bottom),
+                 "stroke=\"#000000\" stroke-opacity=\"0.35\" stroke-width=\"0.6\"");
+    }
+}
+
+void draw_grown_films(Svg& svg, const View& v, const PictureContext& p) {
+    for (const SectionLine& line : p.profile) {
+        std::vector<double> depth(line.points.size(), 0);
+        for (std::size_t film = p.last.grown.material.size(); film-- > 0;)
+            draw_grown_film(svg, v, p, line, film, depth);
+    }
+}
+
+void draw_front(Svg& svg, const View& v, const Section& section, const std::string& style) {
+    std::string data;
+    for (const SectionLine& line : section) {
+        Points points = line.points;
+        for (auto& p : points)
+            p = v.at(p);
+        data += path_data(points, line.closed);
+    }
+    svg.path(data, "fill=\"none\" stroke-linejoin=\"round\" " + style);
+}
+
 void draw_section(Svg& svg, const View& v, const PictureContext& p) {
     svg.define("<clipPath id=\"frame\"><rect x=\"" + px(v.left) + "\" y=\"" + px(v.top) +
                "\" width=\"" + px(v.width()) + "\" height=\"" + px(v.height()) + "\"/></clipPath>");
@@ -258,6 +256,8 @@ void draw_section(Svg& svg, const View& v, const PictureContext& p) {
                                front_colour(f, p.fronts.size()),
                                f == 0 ? " stroke-dasharray=\"5 3\"" : ""));
     draw_front(svg, v, p.profile, "stroke=\"#000000\" stroke-width=\"2.2\"");
+    if (const auto& measured = p.c.measured.contour)
+        draw_front(svg, v, {{measured->points, {}, false}}, measured_style);
     svg.raw("</g>");
     svg.rect({v.left, v.top, v.width(), v.height()},
              "fill=\"none\" stroke=\"#555555\" stroke-width=\"0.8\"");

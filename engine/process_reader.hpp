@@ -32,6 +32,7 @@ public:
     /// reflection law if the chemistry has its own.
     fluxes::SurfaceChemistry read(const YamlNode&, const MaterialData&, fluxes::IonReflection&);
     const std::map<fluxes::Standing, int>& counts() const { return parameters_.counts(); }
+    const std::vector<OpenParameter>& open() const { return parameters_.open(); }
 
 private:
     struct Process;

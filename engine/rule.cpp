@@ -116,6 +116,12 @@ Rule alternatives_rule(const std::string& key, const std::string& selector,
     return rule;
 }
 
+Rule either_rule(const std::string& key, std::vector<Rule> forms, const std::string& meaning) {
+    Rule rule = rule_of(Rule::Kind::either, key, meaning);
+    rule.members = std::move(forms);
+    return rule;
+}
+
 Rule later_rule(const std::string& key, const std::string& instead) {
     return refused_rule(key, "not available yet: " + instead);
 }

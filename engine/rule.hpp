@@ -18,14 +18,15 @@ struct Rule {
         sentence, ///< text of the form `form`, matched by the regular expression `pattern`
         integer,
         number,
-        truth,       ///< true or false
-        quantity,    ///< number with a unit
-        quantities,  ///< one quantity or a list of them, `least_items` to `most_items` long
-        anything,    ///< kept as written
-        map,         ///< known keys: `members`
-        list,        ///< any number of `members[0]`, at least `least_items`
-        dictionary,  ///< names chosen by the user, each with a value by `members[0]`
-        alternatives ///< a map whose key `selector` says which of `members` it follows
+        truth,        ///< true or false
+        quantity,     ///< number with a unit
+        quantities,   ///< one quantity or a list of them, `least_items` to `most_items` long
+        anything,     ///< kept as written
+        map,          ///< known keys: `members`
+        list,         ///< any number of `members[0]`, at least `least_items`
+        dictionary,   ///< names chosen by the user, each with a value by `members[0]`
+        alternatives, ///< a map whose key `selector` says which of `members` it follows
+        either        ///< the one of `members` that is written like it: scalar, list or map
     };
     std::string key; ///< for alternatives: the selecting word, "" = selector absent, "*" = present
     Kind kind = Kind::text;
@@ -64,6 +65,8 @@ Rule list_rule(const std::string& key, Rule item, const std::string& meaning);
 Rule dictionary_rule(const std::string& key, Rule value, const std::string& meaning);
 Rule alternatives_rule(const std::string& key, const std::string& selector,
                        std::vector<Rule> alternatives, const std::string& meaning);
+/// Forms in which one thing may be written: at most one that is a scalar, one list, one map.
+Rule either_rule(const std::string& key, std::vector<Rule> forms, const std::string& meaning);
 /// A key that a later version will read; `instead` says what to use now.
 Rule later_rule(const std::string& key, const std::string& instead);
 /// A key that is never read because it would say too little; `sentence` says what to write.

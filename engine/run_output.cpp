@@ -21,21 +21,27 @@ std::string json_text(const nlohmann::json& json) {
 
 } // namespace
 
-RunOutput::RunOutput(OutputFolder& folder, const Case& c) : folder_(folder), case_(c) {
-    for (const InputFile& file : c.inputs)
-        folder_.write(file.name, file.content);
-    folder_.write(output_names::resolved_case, c.resolved_yaml);
+RunOutput::RunOutput(OutputFolder& folder, const Case& c, const RunParts& parts)
+    : folder_(folder), case_(c), parts_(parts) {
+    if (parts_.resolved_case) write_case();
 }
 
-RunOutput::RunOutput(OutputFolder& folder, const Case& c, const std::vector<SeriesEntry>& frames)
-    : RunOutput(folder, c) {
+RunOutput::RunOutput(OutputFolder& folder, const Case& c, const std::vector<SeriesEntry>& frames,
+                     const RunParts& parts)
+    : RunOutput(folder, c, parts) {
     for (const SeriesEntry& frame : frames) {
         const SurfaceState state = read_vtp(c, folder_.path() + "/" + frame.file);
         fronts_.push_back({frame.time_s, vertical_section(c.domain, state.surface, section_y(c))});
         series_.push_back(frame);
         folder_.note(frame.file);
     }
-    folder_.note(output_names::series);
+    if (!frames.empty()) folder_.note(output_names::series);
+}
+
+void RunOutput::write_case() {
+    for (const InputFile& file : case_.inputs)
+        folder_.write(file.name, file.content);
+    folder_.write(output_names::resolved_case, case_.resolved_yaml);
 }
 
 void RunOutput::save(RunState state) {
@@ -44,6 +50,12 @@ void RunOutput::save(RunState state) {
 }
 
 void RunOutput::add_frame(const SurfaceState& state) {
+    if (!parts_.frames) {
+        if (parts_.pictures)
+            fronts_.push_back(
+                {state.time_s, vertical_section(case_.domain, state.surface, section_y(case_))});
+        return;
+    }
     if (!series_.empty() && state.time_s <= series_.back().time_s) {
         series_.pop_back(); // a later view of the same instant replaces the earlier one
         fronts_.pop_back();
@@ -57,19 +69,22 @@ void RunOutput::add_frame(const SurfaceState& state) {
         {state.time_s, vertical_section(case_.domain, state.surface, section_y(case_))});
 }
 
-Metrics RunOutput::finish(const RunResult& result) {
-    if (series_.empty() || result.last.time_s > series_.back().time_s) add_frame(result.last);
-    folder_.write(output_names::history, history_csv(case_, result.history));
-    folder_.write(output_names::profile, profile_csv(case_, result.last));
-    Metrics metrics = measure(case_, result.last);
-    folder_.write(output_names::metrics, json_text(metrics_json(case_, metrics)));
-    if (result.write_level_set) folder_.write_with(output_names::level_set, result.write_level_set);
-    if (result.record.status == "done" || result.record.status == "not cleared")
-        folder_.remove(output_names::state);
+void RunOutput::write_pictures(const RunResult& result, const Metrics& metrics) {
     const std::string picture = picture_svg(case_, fronts_, result.last, metrics);
     folder_.write(output_names::picture_svg, picture);
     folder_.write(output_names::picture_png, png_of(picture, png_scale));
     write_sheath(folder_, case_, false);
+}
+
+void RunOutput::remove_frames() {
+    for (const SeriesEntry& frame : series_)
+        folder_.remove(frame.file);
+    folder_.remove(output_names::series);
+    folder_.remove(output_names::frames);
+    series_.clear();
+}
+
+void RunOutput::write_record(const RunResult& result) {
     std::vector<std::string> files = folder_.written();
     files.insert(std::upper_bound(files.begin(), files.end(), output_names::record),
                  output_names::record);
@@ -77,6 +92,25 @@ Metrics RunOutput::finish(const RunResult& result) {
     RunRecord record = result.record;
     if (record.peak_memory_bytes == 0) record.peak_memory_bytes = peak_memory_bytes();
     folder_.write(output_names::record, json_text(record_json(case_, record, files)));
+}
+
+Metrics RunOutput::finish(const RunResult& result, const RunParts& parts) {
+    if (parts_.frames && (series_.empty() || result.last.time_s > series_.back().time_s))
+        add_frame(result.last);
+    if (parts.resolved_case && !parts_.resolved_case) write_case();
+    if (parts.history) folder_.write(output_names::history, history_csv(case_, result.history));
+    if (parts.profile) folder_.write(output_names::profile, profile_csv(case_, result.last));
+    Metrics metrics = measure(case_, result.last);
+    folder_.write(output_names::metrics, json_text(metrics_json(case_, metrics)));
+    if (parts.profile && !metrics.comparison.contours.empty())
+        folder_.write(output_names::comparison, comparison_csv(case_, metrics.comparison));
+    if (parts.level_set && result.write_level_set)
+        folder_.write_with(output_names::level_set, result.write_level_set);
+    if (result.record.status == "done" || result.record.status == "not cleared")
+        folder_.remove(output_names::state);
+    if (parts.pictures) write_pictures(result, metrics);
+    if (!parts.frames) remove_frames();
+    if (parts.record) write_record(result);
     return metrics;
 }
 

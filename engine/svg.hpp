@@ -38,6 +38,8 @@ public:
     /// `style` holds attributes: `fill="none" stroke="#000"`.
     void path(const std::string& data, const std::string& style);
     void text(double x, double y, const std::string& content, const TextStyle&);
+    /// What has been drawn so far, without page and definitions.
+    const std::string& body() const { return body_; }
     std::string finish() const;
 
 private:

@@ -2,6 +2,7 @@
 #include "engine/case.hpp"
 #include "engine/metrics.hpp"
 #include "engine/number_text.hpp"
+#include "engine/parameters.hpp"
 
 #include <algorithm>
 #include <cmath>
@@ -13,6 +14,30 @@ namespace {
 
 using nlohmann::json;
 
+constexpr std::size_t most_named = 2;
+
+/// "yields.silicon by chlorine.energy.threshold" as a person would say it.
+std::string spoken(std::string name) {
+    for (const char* prefix : {"yields.", "materials."})
+        if (name.rfind(prefix, 0) == 0) name.erase(0, std::string(prefix).size());
+    std::replace(name.begin(), name.end(), '.', ' ');
+    return name;
+}
+
+/// " (silicon by chlorine energy threshold, ...)": the first by name, yields before all others.
+std::string first_names(const Case& c) {
+    std::vector<std::string> names;
+    for (const bool yields : {true, false})
+        for (const OpenParameter& parameter : c.open_parameters)
+            if ((parameter.name.rfind("yields.", 0) == 0) == yields)
+                names.push_back(spoken(parameter.name));
+    if (names.empty()) return "";
+    std::string text = " (" + names[0];
+    for (std::size_t i = 1; i < std::min(names.size(), most_named); ++i)
+        text += ", " + names[i];
+    return text + (names.size() > most_named ? ", ...)" : ")");
+}
+
 /// The parameters that keep a verdict open, or nothing.
 std::string weak_parameters(const Case& c) {
     std::string text;
@@ -23,7 +48,9 @@ std::string weak_parameters(const Case& c) {
     };
     add(fluxes::Standing::illustrative, "illustrative");
     add(fluxes::Standing::from_memory, "from memory");
-    return text.empty() ? "" : fmt::format("of the parameters of {}, {}", c.chemistry, text);
+    return text.empty()
+               ? ""
+               : fmt::format("of the parameters of {}, {}{}", c.chemistry, text, first_names(c));
 }
 
 std::string range_text(const Target& target, const std::string& unit) {
@@ -72,6 +99,13 @@ json metric_json(const Metric& m) {
     else
         entry["note"] = m.note;
     return entry;
+}
+
+json open_parameters_json(const Case& c) {
+    json list = json::array();
+    for (const OpenParameter& parameter : c.open_parameters)
+        list.push_back({{"name", parameter.name}, {"standing", standing_word(parameter.standing)}});
+    return list;
 }
 
 /// Pads by characters seen, not bytes: the table holds a two-byte plus-minus sign.
@@ -157,14 +191,18 @@ json metrics_json(const Case& c, const Metrics& metrics) {
                             {"film", entry.film},
                             {"cleared", entry.cleared},
                             {"remaining_nm", entry.remaining_nm}});
-    return {{"title", c.title},
-            {"time_s", metrics.time_s},
-            {"errors",
-             "sampling_error: 95 %, from 8 batches; grid error and the uncertainty of the "
-             "parameters are not assessed"},
-            {"metrics", list},
-            {"clearing", clearing},
-            {"targets", targets}};
+    json all = {{"title", c.title},
+                {"time_s", metrics.time_s},
+                {"errors",
+                 "sampling_error: 95 %, from 8 batches; grid error and the uncertainty of the "
+                 "parameters are not assessed"},
+                {"metrics", list},
+                {"clearing", clearing},
+                {"targets", targets},
+                {"open_parameters", open_parameters_json(c)}};
+    if (!metrics.comparison.contours.empty() || !metrics.comparison.cds.empty())
+        all["comparison"] = comparison_json(metrics.comparison);
+    return all;
 }
 
 std::string metrics_table(const Case& c, const Metrics& metrics) {

@@ -4,7 +4,7 @@
 set -euo pipefail
 cd "$(dirname "$0")/.."
 bash .ci/install.sh
-cmake -S . -B build -DCMAKE_BUILD_TYPE=Release >/dev/null
+cmake -S . -B build -DCMAKE_BUILD_TYPE=Release -DRILLE_BUILD_TESTS=OFF >/dev/null
 cmake --build build --parallel "$(nproc)" --target rille
 out=${1:-out/poly-trench}
 build/rille run examples/poly-trench/case.yaml -o "$out" --force

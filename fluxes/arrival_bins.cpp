@@ -3,39 +3,59 @@
 
 #include <algorithm>
 #include <cmath>
+#include <numeric>
 #include <stdexcept>
 
 namespace rille::fluxes {
 namespace {
 
 constexpr double degree = 3.14159265358979323846 / 180;
-constexpr int energy_bins = 96, angle_bins = 48;
+/// Values in order, with the weight below each.
+class Ordered {
+public:
+    Ordered(const std::vector<double>& value, const std::vector<double>& weight) {
+        std::vector<std::size_t> order(value.size());
+        std::iota(order.begin(), order.end(), 0);
+        std::stable_sort(order.begin(), order.end(),
+                         [&](std::size_t a, std::size_t b) { return value[a] < value[b]; });
+        below_.push_back(0);
+        for (const std::size_t i : order) {
+            value_.push_back(value[i]);
+            below_.push_back(below_.back() + (weight.empty() ? 1.0 : weight[i]));
+        }
+    }
+    double first() const { return value_.front(); }
+    double last() const { return value_.back(); }
+    double below(double value) const {
+        return below_[std::lower_bound(value_.begin(), value_.end(), value) - value_.begin()];
+    }
+    double all() const { return below_.back(); }
 
-struct Bin {
-    double low, high;
-    std::size_t count;
-    /// What a quantity in proportion to the value can be wrong by at most.
-    double blur() const { return double(count) * (high - low); }
+private:
+    std::vector<double> value_, below_;
 };
 
-/// Edges of bins over sorted values, `low` below all and `high` above: the bin with the largest
-/// blur is halved until there are enough, so peaks and tails share them by what they may cost. Bins
-/// narrower than `narrowest` stay whole.
-std::vector<double> graded_edges(const std::vector<double>& sorted, double low, double high,
-                                 int bins, double narrowest) {
-    const auto count_below = [&](double value) {
-        return std::size_t(std::lower_bound(sorted.begin(), sorted.end(), value) - sorted.begin());
-    };
-    std::vector<Bin> parts = {{low, high, sorted.size()}};
+struct Bin {
+    double low, high, weight;
+    /// What a quantity in proportion to the value can be wrong by at most.
+    double blur() const { return weight * (high - low); }
+};
+
+/// Edges of bins, `low` below all values and `high` above: the bin with the largest blur is halved
+/// until there are enough, so peaks and tails share them by what they may cost. Bins narrower than
+/// `narrowest` stay whole.
+std::vector<double> graded_edges(const Ordered& values, double low, double high, int bins,
+                                 double narrowest) {
+    std::vector<Bin> parts = {{low, high, values.all()}};
     while (static_cast<int>(parts.size()) < bins) {
         Bin* worst = nullptr;
         for (Bin& bin : parts)
             if (bin.high - bin.low > narrowest && (!worst || bin.blur() > worst->blur()))
                 worst = &bin;
-        if (!worst || worst->count == 0) break;
+        if (!worst || !(worst->weight > 0)) break;
         const double middle = 0.5 * (worst->low + worst->high);
-        const std::size_t first = count_below(middle) - count_below(worst->low);
-        const Bin upper = {middle, worst->high, worst->count - first};
+        const double first = values.below(middle) - values.below(worst->low);
+        const Bin upper = {middle, worst->high, worst->weight - first};
         *worst = {worst->low, middle, first};
         parts.push_back(upper);
     }
@@ -53,7 +73,8 @@ std::size_t bin_of(const std::vector<double>& edges, double value) {
 
 } // namespace
 
-ArrivalBins bins_of(const std::vector<Arrival>& arrivals) {
+ArrivalBins bins_of(const std::vector<Arrival>& arrivals, const std::vector<double>& weight,
+                    int energy_bins, int angle_bins) {
     if (arrivals.empty()) throw std::invalid_argument("a distribution needs at least one arrival");
     std::vector<double> energy, angle;
     for (const Arrival& a : arrivals) {
@@ -62,22 +83,20 @@ ArrivalBins bins_of(const std::vector<Arrival>& arrivals) {
         energy.push_back(a.energy_ev);
         angle.push_back(std::atan(a.tangent) / degree);
     }
-    std::vector<double> sorted_energy = energy, sorted_angle = angle;
-    std::sort(sorted_energy.begin(), sorted_energy.end());
-    std::sort(sorted_angle.begin(), sorted_angle.end());
-    const double highest = std::max(sorted_energy.back(), 1e-9);
+    const Ordered energies(energy, weight), angles(angle, weight);
+    const double highest = std::max(energies.last(), 1e-9);
     const double sliver = 1e-6 * highest;
-    const auto energy_edges =
-        graded_edges(sorted_energy, std::max(0.0, sorted_energy.front() - 0.5 * sliver),
-                     highest + 0.5 * sliver, energy_bins, 4 * sliver);
-    const double widest = std::clamp(sorted_angle.back() * (1 + 1e-9), 1e-4, 90.0);
-    const auto angle_edges = graded_edges(sorted_angle, 0, widest, angle_bins, 1e-4);
+    const auto energy_edges = graded_edges(energies, std::max(0.0, energies.first() - 0.5 * sliver),
+                                           highest + 0.5 * sliver, energy_bins, 4 * sliver);
+    const double widest = std::clamp(angles.last() * (1 + 1e-9), 1e-4, 90.0);
+    const auto angle_edges = graded_edges(angles, 0, widest, angle_bins, 1e-4);
 
-    std::vector<std::vector<double>> weight(energy_edges.size() - 1,
-                                            std::vector<double>(angle_edges.size() - 1, 0.0));
+    std::vector<std::vector<double>> sums(energy_edges.size() - 1,
+                                          std::vector<double>(angle_edges.size() - 1, 0.0));
     for (std::size_t i = 0; i < arrivals.size(); ++i)
-        weight[bin_of(energy_edges, energy[i])][bin_of(angle_edges, angle[i])] += 1;
-    return {energy_edges, angle_edges, std::move(weight)};
+        sums[bin_of(energy_edges, energy[i])][bin_of(angle_edges, angle[i])] +=
+            weight.empty() ? 1.0 : weight[i];
+    return {energy_edges, angle_edges, std::move(sums)};
 }
 
 IonDistribution ArrivalBins::distribution() const {

@@ -3,6 +3,7 @@
 
 #include "fluxes/cross_sections.hpp"
 
+#include <algorithm>
 #include <cmath>
 #include <stdexcept>
 
@@ -67,6 +68,29 @@ const Encounters::Process& Encounters::pick(double energy_ev, double choice) con
         if (left < 0) return process;
     }
     return process_.back();
+}
+
+double Encounters::rate_of(CollisionProcess::Kind kind, double energy_ev) const {
+    double sum = 0;
+    for (const Process& process : process_)
+        if (process.kind == kind) sum += process.rate(energy_ev);
+    return sum;
+}
+
+Encounters::Velocity Encounters::deflected(const Velocity& ion, double choice,
+                                           double cosine) const {
+    constexpr auto kind = CollisionProcess::Kind::isotropic;
+    const double energy_ev = mean_voltage_ * ion.squared();
+    double left = choice * rate_of(kind, energy_ev), ratio = 1;
+    for (const Process& process : process_) {
+        if (process.kind != kind) continue;
+        ratio = process.mass_ratio;
+        left -= process.rate(energy_ev);
+        if (left < 0) break;
+    }
+    const double ion_part = 1 / (1 + ratio), gas_part = 1 - ion_part;
+    const double sine = std::sqrt(std::max(0.0, 1 - cosine * cosine));
+    return {ion.along * (ion_part + gas_part * cosine), ion.along * gas_part * sine};
 }
 
 Encounters::Outcome Encounters::meet(const Velocity& ion, double choice, Draws& draws) const {

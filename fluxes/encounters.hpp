@@ -45,6 +45,12 @@ public:
     bool none() const { return process_.empty(); }
     /// Collisions per y of flight path at the ion's energy.
     double rate(double energy_ev) const { return total_(energy_ev); }
+    /// The same of the processes of one kind.
+    double rate_of(CollisionProcess::Kind, double energy_ev) const;
+    /// An isotropic collision with gas at rest, for ions that fly along the normal: `choice` in
+    /// [0, 1) picks the process, `cosine` is that of the deflection in the frame of the centre of
+    /// mass.
+    Velocity deflected(const Velocity& ion, double choice, double cosine) const;
     /// One collision; `choice` in [0, 1) picks the process.
     Outcome meet(const Velocity& ion, double choice, Draws& draws) const;
 

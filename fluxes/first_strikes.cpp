@@ -89,7 +89,38 @@ ExtrudedStrikes::PlaneTable ExtrudedStrikes::table_of(const InPlane& plane) {
     }
     for (std::size_t b = 1; b < table.first_node.size(); ++b)
         table.first_node[b] += table.first_node[b - 1];
+    table.first_group.push_back(0);
+    for (int b = 0; b + 1 < static_cast<int>(plane.angle.size()); ++b)
+        add_groups(table, plane, b);
     return table;
+}
+
+/// Each node by itself where they are few, else an eighth of the cosines of the bin each.
+void ExtrudedStrikes::add_groups(PlaneTable& table, const InPlane& plane, int bin) {
+    constexpr int few = 16, many = 8;
+    const auto begin = plane.nodes.begin() + table.first_node[bin];
+    const auto end = plane.nodes.begin() + table.first_node[bin + 1];
+    double sum = 0, low = 1, high = 0;
+    for (auto node = begin; node != end; ++node) {
+        table.below.push_back(sum += node->weight);
+        low = std::min(low, node->cos_polar);
+        high = std::max(high, node->cos_polar);
+    }
+    if (end - begin <= few) {
+        for (auto node = begin; node != end; ++node)
+            table.groups.push_back({node->weight, node->cos_polar});
+    } else {
+        std::array<Group, many> groups;
+        const double scale = high > low ? many / (high - low) : 0;
+        for (auto node = begin; node != end; ++node) {
+            const int which = static_cast<int>((node->cos_polar - low) * scale);
+            Group& group = groups[std::min(which, many - 1)];
+            group.weight += node->weight;
+            group.least_cosine = std::min(group.least_cosine, node->cos_polar);
+        }
+        table.groups.insert(table.groups.end(), groups.begin(), groups.end());
+    }
+    table.first_group.push_back(static_cast<int>(table.groups.size()));
 }
 
 /// What any place of the element may see: along a segment both horizons turn one way.
@@ -125,9 +156,9 @@ ExtrudedStrikes::Bins ExtrudedStrikes::guide_of(const InPlane& plane, const Plan
                                        std::max(0.0, own.z + table.slope[b + 1] * own.x));
         double sum = 0;
         if (received > 0)
-            for (int n = table.first_node[b]; n < table.first_node[b + 1]; ++n)
-                sum += plane.nodes[n].weight *
-                       scene_.bound(material, facing(b, b + 1) * plane.nodes[n].cos_polar);
+            for (int g = table.first_group[b]; g < table.first_group[b + 1]; ++g)
+                sum += table.groups[g].weight *
+                       scene_.bound(material, facing(b, b + 1) * table.groups[g].least_cosine);
         bins.below.push_back(bins.below.back() + received * sum * std::max(0.0, bins.width(b)));
     }
     if (!(bins.below.back() > 0)) bins.below.clear();
@@ -163,10 +194,10 @@ Strike ExtrudedStrikes::draw(int ion, int, const ScrambledPoints& points, std::u
     if (std::none_of(seen.begin(), seen.end(),
                      [&](const Visible& v) { return v.low <= phi && phi <= v.high; }))
         return {};
-    int node = table.first_node[b];
-    double left = p2[0] * table.share[b];
-    for (; node + 1 < table.first_node[b + 1] && left >= plane.nodes[node].weight; ++node)
-        left -= plane.nodes[node].weight;
+    const auto first = table.below.begin() + table.first_node[b];
+    const auto end = table.below.begin() + table.first_node[b + 1];
+    const auto drawn_node = std::upper_bound(first, end - 1, p2[0] * table.share[b]);
+    const int node = static_cast<int>(drawn_node - table.below.begin());
     const auto& corners = scene_.surface.corners[e];
     const Vec3 &a = scene_.surface.vertices[corners[0]], &z = scene_.surface.vertices[corners[1]];
     // (flux there) / (density of the draw) / count, the area of the element in both.

@@ -177,6 +177,111 @@ private:
     std::vector<Sum> sums_;
 };
 
+/// Joins the light nodes of each bin that lie at about one angle out of the plane, their energies
+/// in groups: the many nodes of parts that bring little cost as much as those that bring most.
+class LightNodes {
+public:
+    explicit LightNodes(InPlane& plane) : plane_(plane) {
+        double low = HUGE_VAL, high = 0;
+        for (const auto& spectrum : plane.spectra)
+            for (const auto& e : spectrum) {
+                low = std::min(low, e.energy_ev);
+                high = std::max(high, e.energy_ev);
+            }
+        low_ = std::sqrt(low);
+        // Even in the square root, as most yields are.
+        scale_ = high > low ? groups / (std::sqrt(high) - low_) : 0;
+    }
+
+    /// For nodes ordered by bin.
+    void join() {
+        std::vector<InPlane::Node> nodes;
+        nodes.swap(plane_.nodes);
+        for (auto first = nodes.begin(), last = first; first != nodes.end(); first = last) {
+            double all = 0;
+            for (; last != nodes.end() && last->bin == first->bin; ++last)
+                all += last->weight;
+            if (last - first <= few) {
+                plane_.nodes.insert(plane_.nodes.end(), first, last);
+                continue;
+            }
+            const int steps = all < small_bin ? sines / 4 : sines;
+            for (auto node = first; node != last; ++node) {
+                if (node->weight > light * all)
+                    plane_.nodes.push_back(*node);
+                else
+                    add(*node, steps);
+            }
+            close_bin(first->bin, all);
+        }
+    }
+
+private:
+    static constexpr int few = 48, groups = 24, sines = 128, most_joined = 8;
+    static constexpr double light = 1 / 64., small_bin = 1 / 1024.;
+    struct Sum {
+        double weight = 0, slope = 0, cosine = 0;
+        std::array<double, groups> share{}, energy{};
+
+        void operator+=(const Sum& other) {
+            weight += other.weight;
+            slope += other.slope;
+            cosine += other.cosine;
+            for (int g = 0; g < groups; ++g) {
+                share[g] += other.share[g];
+                energy[g] += other.energy[g];
+            }
+        }
+    };
+
+    void add(const InPlane::Node& node, int steps) {
+        const double in_plane = node.cos_polar * node.cos_polar * (1 + node.slope * node.slope);
+        const int step = static_cast<int>(std::sqrt(std::max(0.0, 1 - in_plane)) * steps);
+        Sum& sum = sums_[std::min(step, steps - 1)];
+        sum.weight += node.weight;
+        sum.slope += node.weight * node.slope;
+        sum.cosine += node.weight * node.cos_polar;
+        for (const auto& e : plane_.spectra[node.spectrum]) {
+            const int group = static_cast<int>((std::sqrt(e.energy_ev) - low_) * scale_);
+            sum.share[std::clamp(group, 0, groups - 1)] += node.weight * e.share;
+            sum.energy[std::clamp(group, 0, groups - 1)] += node.weight * e.share * e.energy_ev;
+        }
+    }
+
+    void put(int bin, const Sum& sum) {
+        if (!(sum.weight > 0)) return;
+        std::vector<InPlane::EnergyShare> spectrum;
+        for (int g = 0; g < groups; ++g)
+            if (sum.share[g] > 0)
+                spectrum.push_back({sum.energy[g] / sum.share[g], sum.share[g] / sum.weight});
+        plane_.nodes.push_back({bin, sum.slope / sum.weight, sum.cosine / sum.weight, sum.weight,
+                                static_cast<int>(plane_.spectra.size())});
+        plane_.spectra.push_back(std::move(spectrum));
+    }
+
+    /// Neighbours that are lighter still share a node.
+    void close_bin(int bin, double all) {
+        Sum group;
+        int joined = 0;
+        for (Sum& sum : sums_) {
+            const bool alone = sum.weight > light / 8 * all;
+            if (alone || joined == most_joined) {
+                put(bin, group);
+                group = {};
+                joined = 0;
+            }
+            group += sum;
+            joined = alone ? most_joined : joined + 1;
+            sum = {};
+        }
+        put(bin, group);
+    }
+
+    InPlane& plane_;
+    double low_ = 0, scale_ = 0;
+    std::array<Sum, sines> sums_;
+};
+
 } // namespace
 
 InPlane from_mixture(const IonMixture& law) {
@@ -200,6 +305,7 @@ InPlane from_mixture(const IonMixture& law) {
     }
     std::stable_sort(plane.nodes.begin(), plane.nodes.end(),
                      [](const auto& a, const auto& b) { return a.bin < b.bin; });
+    LightNodes(plane).join();
     sum_up(plane);
     return plane;
 }

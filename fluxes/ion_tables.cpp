@@ -1,6 +1,7 @@
 // SPDX-License-Identifier: Apache-2.0
 #include "fluxes/ion_tables.hpp"
 
+#include "fluxes/gathered_ions.hpp"
 #include "fluxes/ion_laws.hpp"
 
 #include <tbb/blocked_range.h>
@@ -180,20 +181,16 @@ std::vector<double> IonTables::tabulate(const Tally& t) const {
             sum += e.share * energy_yield(t.yield.energy, e.energy_ev);
         energy.push_back(sum * t.yield.scale * ion.flux);
     }
+    const GatheredIons gathered(plane, energy);
+    const AngleTable factor(t.yield.angle);
     const std::size_t count = angles_.size();
     std::vector<double> table(plane.angle.size() * count, 0.0);
     tbb::parallel_for(tbb::blocked_range<std::size_t>(0, count), [&](const auto& range) {
         for (std::size_t k = range.begin(); k != range.end(); ++k) {
             const double c = std::cos(angles_[k]), s = std::sin(angles_[k]);
-            for (const InPlane::Node& node : plane.nodes) {
-                const double received = c + node.slope * s; // (r . n) / r_z
-                if (received <= 0) continue;
-                table[(node.bin + 1) * count + k] +=
-                    node.weight * energy[node.spectrum] * received *
-                    angle_factor(t.yield.angle, received * node.cos_polar);
-            }
-            for (std::size_t b = 1; b < plane.angle.size(); ++b)
-                table[b * count + k] += table[(b - 1) * count + k];
+            for (std::size_t b = 0; b < gathered.bins(); ++b)
+                table[(b + 1) * count + k] =
+                    table[b * count + k] + gathered.on_surface(b, c, s, factor);
         }
     });
     return table;

@@ -2,9 +2,11 @@
 #include "fluxes/sheath_arrival.hpp"
 
 #include "fluxes/plasma_laws.hpp"
+#include "fluxes/sheath_collided.hpp"
 #include "fluxes/sheath_filter.hpp"
 
 #include <stdexcept>
+#include <utility>
 
 namespace rille::fluxes {
 
@@ -25,14 +27,35 @@ SheathWay way_through(const Sheath& sheath, const SheathIon& ion) {
     return sheath.edge == SheathEdge::moving ? SheathWay::trajectories : SheathWay::closed_form;
 }
 
+namespace {
+
+IonDistribution whole(const std::vector<FewCollisions::Part>& parts, double own,
+                      const IonDistribution* first) {
+    std::vector<double> weight;
+    std::vector<IonDistribution> part;
+    if (first) {
+        weight.push_back(own);
+        part.push_back(*first);
+    }
+    for (const FewCollisions::Part& p : parts) {
+        weight.push_back(p.per_ion);
+        part.push_back(p.particles);
+    }
+    return IonDistribution::mixture(std::move(weight), std::move(part));
+}
+
+} // namespace
+
 SheathArrival arrive_in_closed_form(const Sheath& sheath, const SheathIon& ion) {
     SheathArrival arrival;
     arrival.way = way_through(sheath, ion);
-    if (arrival.way == SheathWay::free_fall)
-        arrival.ions.push_back(IonDistribution::thermal_fall(
-            sheath.voltage.mean() + entry_energy_ev(sheath), ion.transverse_ev, ion.transverse_ev));
-    else
-        arrival.ions.push_back(damped_arrival(sheath, ion));
+    const FewCollisions few = few_collisions(sheath, ion);
+    const IonDistribution free = damped_arrival(sheath, ion, few.uncollided_gain);
+    arrival.ions.push_back(whole(few.ions, few.uncollided, &free));
+    if (few.fast_neutrals.empty()) return arrival;
+    arrival.fast_neutrals.push_back(whole(few.fast_neutrals, 0, nullptr));
+    for (const FewCollisions::Part& part : few.fast_neutrals)
+        arrival.fast_neutrals_per_ion += part.per_ion;
     return arrival;
 }
 

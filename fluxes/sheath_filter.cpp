@@ -178,13 +178,15 @@ std::vector<double> time_shares(const Waveform& voltage, const std::vector<doubl
     return share;
 }
 
-IonDistribution damped_arrival(const Sheath& sheath, const SheathIon& ion) {
-    const double mean = sheath.voltage.mean(), entry = entry_energy_ev(sheath);
+IonDistribution damped_arrival(const Sheath& sheath, const SheathIon& ion, double gain) {
+    const double mean = sheath.voltage.mean();
+    const double entry = entry_energy_ev(sheath) + ion.transverse_ev; // as warm along the normal
     require(std::isfinite(mean) && mean > 0, "the mean voltage across a sheath must be above zero");
     require(sheath.voltage.lowest() >= 0, "the voltage across a sheath must not be negative");
     require(sheath.thickness_nm > 0, "a sheath thickness must be above zero");
-    if (sheath.voltage.is_steady())
-        return IonDistribution::thermal_fall(mean + entry, ion.transverse_ev, 0);
+    const IonDistribution steady = IonDistribution::thermal_fall(
+        mean + entry_energy_ev(sheath), ion.transverse_ev, ion.transverse_ev);
+    if (sheath.voltage.is_steady()) return steady;
     const double transit = transit_time_s(sheath, ion.mass_amu);
     const Gains gains = gains_of(sheath, transit);
     const double limit = damping_limit(sheath);
@@ -201,13 +203,12 @@ IonDistribution damped_arrival(const Sheath& sheath, const SheathIon& ion) {
     energy = energy.raised_by(entry + gains.middle * mean);
     const double low = energy.lowest(), high = energy.highest();
     const double all = high - low;
-    if (!(all > 1e-6 * high))
-        return IonDistribution::thermal_fall(mean + entry, ion.transverse_ev, 0);
+    if (!(all > 1e-6 * high)) return steady;
     std::vector<double> edges;
     for (int e = 0; e <= energy_bins; ++e)
         edges.push_back(low + all * e / energy_bins);
     edges.back() = high;
-    const double wanted = mean + entry + gains.mean * mean;
+    const double wanted = gain * (mean + entry + gains.mean * mean);
     return IonDistribution::falling_spectrum(
         edges, bunched(time_shares(energy, edges), edges, wanted), ion.transverse_ev);
 }

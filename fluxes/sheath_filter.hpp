@@ -36,16 +36,18 @@ double mean_gain(double omega_tau, double swing, double entry, double profile_po
 /// lines between samples.
 std::vector<double> time_shares(const Waveform&, const std::vector<double>& edges);
 
-/// Closed form for a sheath without collisions: the normal energy is the damped voltage plus half
-/// the electron temperature; the spread in angle is thermal. Beyond the damping it carries what
-/// trajectories show: the mean of `mean_gain`, brought in by a power of the energy on the arrivals,
-/// and small corrections of the middle (up to 9 % of the mean voltage) and the width (up to 6 %),
-/// tabulated over omega tau_i and added up over the Fourier components. Against trajectories in a
-/// Child sheath: mean energy within 1 %, width between 5 and 95 % of the ions within 10 %, median
-/// angle within 5 %. Not so for other fields: widths up to 13 % off with x^2, and with a moving
-/// edge up to a third too wide near omega tau_i = 2, where the ions bunch most; the mean still
-/// holds. Of pulses as short as the transit time the low tail is only told by a factor. Throws
-/// std::invalid_argument on a sheath that cannot be.
-IonDistribution damped_arrival(const Sheath&, const SheathIon&);
+/// Closed form for ions without collisions: the normal energy is the damped voltage plus half the
+/// electron temperature plus the mean thermal energy along the normal, that of `transverse_ev`; the
+/// spread in angle is thermal. In a steady sheath the thermal fall, exact. `gain` is a factor on
+/// the mean energy, for those ions that come through where collisions take others. Beyond the
+/// damping it carries what trajectories show: the mean of `mean_gain`, brought in by a power of the
+/// energy on the arrivals, and small corrections of the middle (up to 9 % of the mean voltage) and
+/// the width (up to 6 %), tabulated over omega tau_i and added up over the Fourier components.
+/// Against trajectories in a Child sheath: mean energy within 1 %, width between 5 and 95 % of the
+/// ions within 10 %, median angle within 5 %. Not so for other fields: widths up to 13 % off with
+/// x^2, and with a moving edge up to a third too wide near omega tau_i = 2, where the ions bunch
+/// most; the mean still holds. Of pulses as short as the transit time the low tail is only told by
+/// a factor. Throws std::invalid_argument on a sheath that cannot be.
+IonDistribution damped_arrival(const Sheath&, const SheathIon&, double gain = 1);
 
 } // namespace rille::fluxes

@@ -58,8 +58,10 @@ struct ArrivalBins {
     IonDistribution distribution() const;
 };
 /// The bins are halved where they blur the most, so that narrow beams and wide tails are both
-/// resolved. Throws std::invalid_argument on no arrivals or such that cannot be.
-ArrivalBins bins_of(const std::vector<Arrival>&);
+/// resolved. Each arrival counts by its weight, above zero; all alike without weights. Throws
+/// std::invalid_argument on no arrivals or such that cannot be.
+ArrivalBins bins_of(const std::vector<Arrival>&, const std::vector<double>& weight = {},
+                    int energy_bins = 96, int angle_bins = 48);
 IonDistribution distribution_of(const std::vector<Arrival>&);
 
 } // namespace rille::fluxes

@@ -60,6 +60,26 @@ std::optional<Measured> cd_at(const Domain& domain, const Surface& surface, cons
     return width_at(along_x(domain, surface, site), z);
 }
 
+std::optional<Lines> lines_at(const Domain& domain, const Surface& surface, const FeatureSite& site,
+                              double z) {
+    const Section section = along_x(domain, surface, site);
+    const auto gap = section.gap_at(z);
+    if (!gap) return {};
+    const Section::Crossing *before = nullptr, *after = nullptr; // walls of the next gaps
+    const std::vector<Section::Crossing> walls = section.level(z);
+    for (const Section::Crossing& wall : walls) {
+        if (wall.u < gap->left.u && wall.piece != gap->left.piece) before = &wall;
+        if (wall.u > gap->right.u && wall.piece != gap->right.piece && !after) after = &wall;
+    }
+    if (!before || !after) return {};
+    const auto solid = [](const Section::Crossing& left, const Section::Crossing& right) {
+        return Measured{right.u - left.u,
+                        {{left.piece->element, -level_shift(*left.piece)},
+                         {right.piece->element, level_shift(*right.piece)}}};
+    };
+    return Lines{solid(*before, gap->left), solid(gap->right, *after)};
+}
+
 std::optional<Measured> cd_y_at(const Domain& domain, const Surface& surface,
                                 const FeatureSite& site, double z) {
     if (domain.extruded()) return {};

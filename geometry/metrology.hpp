@@ -36,7 +36,13 @@ struct FeatureSite {
 
 /// CD: full width of the gap along x at height z.
 std::optional<Measured> cd_at(const Domain&, const Surface&, const FeatureSite&, double z);
-/// CD y: the same along y (full only).
+/// Widths along x of the solid on either side of the gap at height z, to the next gap (which may be
+/// the image of the feature itself beyond a side). Nothing where the gap or a next one is missing.
+struct Lines {
+    Measured left, right;
+};
+std::optional<Lines> lines_at(const Domain&, const Surface&, const FeatureSite&, double z);
+/// CD y: full width of the gap along y at height z (full only).
 std::optional<Measured> cd_y_at(const Domain&, const Surface&, const FeatureSite&, double z);
 /// Area-equivalent CD: 2 sqrt(area / pi) of the level section round the axis at z, less pillars
 /// standing in it (full only).

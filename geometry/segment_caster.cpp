@@ -18,15 +18,21 @@ constexpr double far_away = 1e300;
 // A ray below the highest point of the surface meets the period's highest point, or what lies in
 // front of it, within two images; more means that something is broken.
 constexpr int most_folds = 16;
+// Of the in-plane part of a unit direction.
+constexpr double least_square = 1e-24;
 
 double safe_inverse(double v) {
     if (std::fabs(v) > 1.0 / far_away) return 1.0 / v;
     return std::signbit(v) ? -far_away : far_away;
 }
 
-struct Pair {
-    double x, z;
-};
+/// x and z of a point or direction.
+using Pair [[gnu::vector_size(16)]] = double;
+
+inline double dot(const Pair& a, const Pair& b) {
+    const Pair product = a * b;
+    return product[0] + product[1];
+}
 
 /// Bit k: vertex k lies on the right of the ray through o along d; side: its cross product with d.
 /// `count` is even, x and z aligned to 16 bytes. Both ways give the same bits.
@@ -35,8 +41,8 @@ inline unsigned vertices_on_right(const double* x, const double* z, const Pair& 
                                   double positive, double* side) {
     unsigned right = 0;
 #ifdef __SSE2__
-    const __m128d ox = _mm_set1_pd(o.x), oz = _mm_set1_pd(o.z);
-    const __m128d dx = _mm_set1_pd(d.x), dz = _mm_set1_pd(d.z), limit = _mm_set1_pd(positive);
+    const __m128d ox = _mm_set1_pd(o[0]), oz = _mm_set1_pd(o[1]);
+    const __m128d dx = _mm_set1_pd(d[0]), dz = _mm_set1_pd(d[1]), limit = _mm_set1_pd(positive);
     for (int k = 0; k < count; k += 2) {
         const __m128d along = _mm_mul_pd(dx, _mm_sub_pd(_mm_load_pd(z + k), oz));
         const __m128d across = _mm_mul_pd(dz, _mm_sub_pd(_mm_load_pd(x + k), ox));
@@ -46,7 +52,7 @@ inline unsigned vertices_on_right(const double* x, const double* z, const Pair& 
     }
 #else
     for (int k = 0; k < count; ++k) {
-        side[k] = d.x * (z[k] - o.z) - d.z * (x[k] - o.x);
+        side[k] = d[0] * (z[k] - o[1]) - d[1] * (x[k] - o[0]);
         right |= static_cast<unsigned>(side[k] < positive) << k;
     }
 #endif
@@ -56,13 +62,11 @@ inline unsigned vertices_on_right(const double* x, const double* z, const Pair& 
 } // namespace
 
 struct SegmentCaster::Ray {
-    double ox, oz;         ///< origin in the frame of the present image
-    double dx, dz;         ///< in-plane part of the unit direction: t is path length
-    double inverse_square; ///< 1 / (dx^2 + dz^2)
-    double slack;          ///< `slack_` as path length
+    double ox, oz; ///< origin in the frame of the present image
+    double dx, dz; ///< in-plane part of the unit direction
+    double square; ///< dx^2 + dz^2
     double inverse_x, inverse_z;
-    double positive; ///< a vertex with side(v) >= positive lies on the left
-    double t = 0;    ///< path length so far
+    double positive = 0; ///< a vertex with side(v) >= positive lies on the left
     int ix = 0, iz = 0;
     int from = -1;
     int folds = 0;
@@ -80,11 +84,11 @@ struct SegmentCaster::Ray {
     }
 };
 
-struct SegmentCaster::Best {
-    double t = far_away;
-    double share = 0; ///< of the way from a to b
-    const Run* run = nullptr;
-    int k = 0; ///< segment of the run
+/// Where a ray crosses a segment.
+struct SegmentCaster::Crossing {
+    double x, z;
+    double way = std::numeric_limits<double>::infinity(); ///< path length * Ray::square
+    int element = -1;
 };
 
 SegmentCaster::SegmentCaster(const Domain& domain, const Surface& surface, double z_open)
@@ -105,8 +109,10 @@ SegmentCaster::SegmentCaster(const Domain& domain, const Surface& surface, doubl
     for (int e = 0; e < static_cast<int>(surface.size()); ++e)
         concave_.push_back({concave_at(e, 0), concave_at(e, 1)});
     choose_grid(surface);
-    fill_cells(surface);
-    find_rectangles();
+    const std::vector<std::vector<int>> lists = list_elements();
+    fill_cells(lists, surface);
+    find_rooms();
+    find_starts(lists);
     lay_out_cells();
 }
 
@@ -125,40 +131,51 @@ void SegmentCaster::fold_into_period(Ray& ray, double t) const {
 
 /// Brings the ray to the grid; false if it never gets there.
 bool SegmentCaster::enter(Ray& ray) const {
+    double t = 0;
     if (ray.oz >= z_top_) {
         if (ray.dz >= 0) return false;
-        ray.t = (z_top_ - ray.oz) / ray.dz;
+        t = (z_top_ - ray.oz) / ray.dz;
     }
-    fold_into_period(ray, ray.t);
+    fold_into_period(ray, t);
     // A ray that runs exactly along a side is moved into the period, where it has one answer.
     if (ray.dx == 0)
         ray.ox = std::clamp(ray.ox, x_min_ + 1e-12 * width_, x_min_ + (1 - 1e-12) * width_);
-    const double x = ray.ox + ray.t * ray.dx, z = ray.oz + ray.t * ray.dz;
+    const double x = ray.ox + t * ray.dx, z = ray.oz + t * ray.dz;
     ray.ix = std::clamp(static_cast<int>((x - x_min_) * per_cell_x_), 0, nx_ - 1);
     ray.iz = std::clamp(static_cast<int>((z - z_min_) * per_cell_z_), 0, nz_ - 1);
     return true;
 }
 
+inline int SegmentCaster::content_at(const Cell& cell) const {
+    return content_[(cell.z + 1) * next_z_ + (cell.x + 1) * next_x_];
+}
+
 /// Moves the ray from a cell to the next one.
-inline void SegmentCaster::cross_cell(Ray& ray, bool aside) const {
-    const int x = ray.rightwards() ? 1 : -1, z = ray.upwards() ? 1 : -1;
-    ray.ix += aside ? x : 0;
-    ray.iz += aside ? 0 : z;
+inline void SegmentCaster::cross_cell(Ray& ray) const {
+    const bool right = ray.rightwards(), up = ray.upwards();
+    const double tx = (x_min_ + (ray.ix + right) * cell_x_ - ray.ox) * ray.inverse_x;
+    const double tz = (z_min_ + (ray.iz + up) * cell_z_ - ray.oz) * ray.inverse_z;
+    const bool aside = tx < tz;
+    ray.ix += aside ? 2 * right - 1 : 0;
+    ray.iz += aside ? 0 : 2 * up - 1;
 }
 
 /// Moves the ray to the cell beyond the edge of a room that it meets first.
-inline void SegmentCaster::cross_room(Ray& ray, const Rectangle& r, bool aside) const {
+inline void SegmentCaster::cross_room(Ray& ray, const Room& room) const {
     const bool right = ray.rightwards(), up = ray.upwards();
+    const double tx = (room.x[right] - ray.ox) * ray.inverse_x;
+    const double tz = (room.z[up] - ray.oz) * ray.inverse_z;
+    const Rectangle& r = room.cells;
     // Along the other axis the cell never lies behind the present one or outside the room, so
     // round-off cannot keep a ray from getting on.
-    if (aside) {
-        const double z = (ray.oz + ray.t * ray.dz - z_min_) * per_cell_z_;
-        ray.ix = right ? r.x1 + 1 : r.x0 - 1;
-        ray.iz = std::clamp(static_cast<int>(z), up ? ray.iz : r.z0, up ? r.z1 : ray.iz);
+    if (tx < tz) {
+        const int iz = static_cast<int>((ray.oz + tx * ray.dz - z_min_) * per_cell_z_);
+        ray.iz = std::min(std::max(iz, up ? ray.iz : r.z[0]), up ? r.z[1] : ray.iz);
+        ray.ix = r.x[right] + 2 * right - 1;
     } else {
-        const double x = (ray.ox + ray.t * ray.dx - x_min_) * per_cell_x_;
-        ray.iz = up ? r.z1 + 1 : r.z0 - 1;
-        ray.ix = std::clamp(static_cast<int>(x), right ? ray.ix : r.x0, right ? r.x1 : ray.ix);
+        const int ix = static_cast<int>((ray.ox + tz * ray.dx - x_min_) * per_cell_x_);
+        ray.ix = std::min(std::max(ix, right ? ray.ix : r.x[0]), right ? r.x[1] : ray.ix);
+        ray.iz = r.z[up] + 2 * up - 1;
     }
 }
 
@@ -177,95 +194,66 @@ bool SegmentCaster::cross_side(Ray& ray) const {
     return true;
 }
 
-/// Tests the runs of one cell, of which `run` is the first.
-inline void SegmentCaster::test_runs(const Ray& ray, const Run* run, Best& best) const {
-    constexpr unsigned segments = (1u << run_length) - 1;
+/// Tests the runs of the ray's cell, of which `run` is the first.
+inline bool SegmentCaster::test_runs(const Ray& ray, const Run* run, Crossing& nearest) const {
     alignas(16) std::array<double, run_vertices> side;
+    bool found = false;
     for (;; ++run) {
         const unsigned right =
-            vertices_on_right<run_vertices>(run->x.data(), run->z.data(), {ray.ox, ray.oz},
-                                            {ray.dx, ray.dz}, ray.positive, side.data());
+            vertices_on_right<run_vertices>(run->x.data(), run->z.data(), Pair{ray.ox, ray.oz},
+                                            Pair{ray.dx, ray.dz}, ray.positive, side.data());
         // From the gas the ray sees a segment's start on its right and its end on its left.
-        for (unsigned crossed = right & ~(right >> 1) & segments; crossed != 0;
+        for (unsigned crossed = right & ~(right >> 1) & run_segments; crossed != 0;
              crossed &= crossed - 1) {
             const int k = __builtin_ctz(crossed);
-            test_segment(ray, *run, k, side[k] / (side[k] - side[k + 1]), best);
+            found |= test_segment(ray, *run, k, side[k] / (side[k] - side[k + 1]), nearest);
         }
-        if (run->last) return;
+        if (run->last) return found;
     }
 }
 
-inline void SegmentCaster::test_segment(const Ray& ray, const Run& run, int k, double share,
-                                        Best& best) const {
+/// `share` of the way from a to b the ray crosses a segment: takes the crossing if it lies in the
+/// ray's cell and nearer than the one so far.
+inline bool SegmentCaster::test_segment(const Ray& ray, const Run& run, int k, double share,
+                                        Crossing& nearest) const {
+    const double x = run.x[k] + share * (run.x[k + 1] - run.x[k]);
+    const double z = run.z[k] + share * (run.z[k + 1] - run.z[k]);
+    if (std::fabs((x - x_min_) * per_cell_x_ - (ray.ix + 0.5)) > 0.5 + hit_reach) return false;
+    if (std::fabs((z - z_min_) * per_cell_z_ - (ray.iz + 0.5)) > 0.5 + hit_reach) return false;
+    const double way = (x - ray.ox) * ray.dx + (z - ray.oz) * ray.dz;
+    if (way >= nearest.way) return false;
     const int element = run.element + k;
-    if (element == ray.from && ray.folds == 0) return;
-    const double ta = ray.dx * (run.x[k] - ray.ox) + ray.dz * (run.z[k] - ray.oz);
-    const double tb = ray.dx * (run.x[k + 1] - ray.ox) + ray.dz * (run.z[k + 1] - ray.oz);
-    const double t = (ta + share * (tb - ta)) * ray.inverse_square;
-    if (t < -ray.slack || t >= best.t) return;
-    if (t < ray.slack && ray.from >= 0 && behind_at_start(ray.from, element)) return;
-    best = {t, share, &run, k};
+    if (element == ray.from && ray.folds == 0) return false;
+    if (!(way > 0 && way * way > slack_ * slack_ * ray.square) &&
+        !counts_at_start(ray, element, way))
+        return false;
+    nearest = {x, z, way, element};
+    return true;
+}
+
+/// Whether a crossing counts that lies, to round-off, at the origin or behind it.
+bool SegmentCaster::counts_at_start(const Ray& ray, int element, double way) const {
+    if (way < 0 && way * way > slack_ * slack_ * ray.square) return false;
+    return ray.from < 0 || !behind_at_start(ray.from, element);
 }
 
 /// `hit` holds the origin and direction of the ray; so it does in finish_open.
-void SegmentCaster::finish_hit(const Ray& ray, const Best& best, Hit& hit) const {
-    const Run& run = *best.run;
-    const int k = best.k;
+inline void SegmentCaster::finish_hit(const Ray& ray, const Crossing& at, Hit& hit) const {
     hit.kind = Hit::Kind::surface;
-    hit.element = run.element + k;
-    hit.distance = std::max(best.t, 0.0);
-    const double x = run.x[k] + best.share * (run.x[k + 1] - run.x[k]);
-    hit.point =
-        Vec3(std::clamp(x, x_min_, x_min_ + width_), hit.point.y + hit.distance * hit.direction.y,
-             run.z[k] + best.share * (run.z[k + 1] - run.z[k]));
+    hit.element = at.element;
+    hit.distance = std::max(at.way, 0.0) / ray.square;
+    hit.point = Vec3(std::min(std::max(at.x, x_min_), x_min_ + width_),
+                     hit.point.y + hit.distance * hit.direction.y, at.z);
     if (ray.flipped) hit.direction.x = -hit.direction.x;
 }
 
-/// Normal (not unit) of the segment at one end of `element`; at a mirror side its own image.
-std::array<double, 2> SegmentCaster::normal_beyond(int element, int end) const {
-    const int other = joined_[element][end];
-    const auto& s = ends_[other < 0 ? element : other];
-    return {other < 0 ? s[3] - s[1] : s[1] - s[3], s[2] - s[0]};
-}
-
-/// True where the segment beyond rises in front of `element`.
-bool SegmentCaster::concave_at(int element, int end) const {
-    const auto& own = ends_[element];
-    const std::array<double, 2> n = normal_beyond(element, end);
-    const double turn = (own[2] - own[0]) * -n[0] - (own[3] - own[1]) * n[1];
-    return end == 1 ? turn > 0 : turn < 0;
-}
-
-/// Whether nothing in the cell that the ray starts in can be in its way. The margin is for rays
+/// Whether a ray reaches the room in front of the element that it leaves. The margin is for rays
 /// along a straight wall, which round-off takes to either side of it.
-bool SegmentCaster::clears_own_cell(const Vec3& direction, int from) const {
+inline bool SegmentCaster::reaches_room(const Vec3& direction, const Start& start) const {
     constexpr double margin = 1e-6;
-    const auto& own = ends_[from];
-    const double sx = own[2] - own[0], sz = own[3] - own[1];
-    const double up = sx * direction.z - sz * direction.x;
-    const double along = sx * direction.x + sz * direction.z;
-    return up > (skyline_[from] + margin) * std::fabs(along);
-}
-
-/// A ray that starts, to round-off, in a concave joint and points into the other segment ends
-/// there. Which of the two segments its line crosses is then a matter of the last bit.
-bool SegmentCaster::starts_in_joint(const Vec3& origin, const Vec3& direction, int from,
-                                    Hit& hit) const {
-    const auto& own = ends_[from];
-    for (int end = 0; end < 2; ++end) {
-        if (std::fabs(own[2 * end] - origin.x) + std::fabs(own[2 * end + 1] - origin.z) > slack_)
-            continue;
-        const std::array<double, 2> n = normal_beyond(from, end);
-        if (!concave_[from][end] || n[0] * direction.x + n[1] * direction.z >= 0) continue;
-        const bool image = joined_[from][end] < 0;
-        hit.kind = Hit::Kind::surface;
-        hit.element = image ? from : joined_[from][end];
-        hit.point = origin;
-        hit.direction = direction;
-        if (image) hit.direction.x = -direction.x;
-        return true;
-    }
-    return false;
+    const double up = start.along_x * direction.z - start.along_z * direction.x;
+    const double along = start.along_x * direction.x + start.along_z * direction.z;
+    return up > (start.skyline[along > 0] + margin) * std::fabs(along);
 }
 
 void SegmentCaster::finish_open(Ray& ray, Hit& hit) const {
@@ -278,59 +266,106 @@ void SegmentCaster::finish_open(Ray& ray, Hit& hit) const {
     if (ray.flipped) hit.direction.x = -hit.direction.x;
 }
 
+/// The cell beyond the edge of `room` that a ray from before or in it meets first.
+[[gnu::always_inline]] inline SegmentCaster::Cell
+SegmentCaster::cell_beyond(const Room& room, const Vec3& origin, const Vec3& direction) const {
+    const Pair o{origin.x, origin.z}, d{direction.x, direction.z};
+    const bool right = !std::signbit(d[0]), up = !std::signbit(d[1]);
+    const double tx = (room.x[right] - o[0]) * safe_inverse(d[0]);
+    const double tz = (room.z[up] - o[1]) * safe_inverse(d[1]);
+    const Pair at =
+        (o + std::min(tx, tz) * d - Pair{x_min_, z_min_}) * Pair{per_cell_x_, per_cell_z_};
+    const auto within = [](double v, const std::array<int, 2>& range) {
+        return std::min(std::max(static_cast<int>(v), range[0]), range[1]);
+    };
+    if (tx < tz) return {room.beyond.x[right], within(at[1], room.cells.z)};
+    return {within(at[0], room.cells.x), room.beyond.z[up]};
+}
+
+/// The shortcut that most rays from a surface take: across the room in front of the element, and
+/// into a segment behind it. Otherwise false; then `cell` is the one beyond the room, or stays.
+[[gnu::always_inline]] inline bool SegmentCaster::trace_across(const Vec3& origin,
+                                                               const Vec3& direction, int from,
+                                                               Hit& hit, Cell& cell) const {
+    const Pair o{origin.x, origin.z}, d{direction.x, direction.z};
+    const double square = dot(d, d);
+    if (!reaches_room(direction, starts_[from]) || !(square > least_square)) return false;
+    cell = cell_beyond(rooms_[starts_[from].room], origin, direction);
+    const int content = content_at(cell);
+    if (content < 0) return false;
+    const Run& run = runs_[content];
+    alignas(16) std::array<double, run_vertices> side;
+    const unsigned right =
+        vertices_on_right<run_vertices>(run.x.data(), run.z.data(), o, d, 0.0, side.data());
+    const unsigned crossed = right & ~(right >> 1) & run_segments;
+    if (crossed == 0 || (crossed & (crossed - 1)) != 0 || !run.last) return false;
+    const int k = __builtin_ctz(crossed);
+    const Pair a{run.x[k], run.z[k]}, b{run.x[k + 1], run.z[k + 1]};
+    const Pair point = a + side[k] / (side[k] - side[k + 1]) * (b - a);
+    const Pair off = (point - Pair{x_min_, z_min_}) * Pair{per_cell_x_, per_cell_z_} -
+                     Pair{cell.x + 0.5, cell.z + 0.5};
+    if (!(std::max(std::fabs(off[0]), std::fabs(off[1])) <= 0.5 + hit_reach)) return false;
+    const double way = dot(point - o, d);
+    if (!(way > 0 && way * way > slack_ * slack_ * square)) return false;
+    hit.kind = Hit::Kind::surface;
+    hit.element = run.element + k;
+    hit.distance = way / square;
+    hit.point = Vec3(std::min(std::max(point[0], x_min_), x_min_ + width_),
+                     origin.y + hit.distance * direction.y, point[1]);
+    return hit.element != from;
+}
+
 Hit SegmentCaster::trace(const Vec3& origin, const Vec3& direction, int from_element) const {
     Hit hit;
+    hit.direction = direction;
+    Cell cell = nowhere;
+    if (from_element < 0 || !trace_across(origin, direction, from_element, hit, cell))
+        trace_by_cells(origin, direction, from_element, cell, hit);
+    return hit;
+}
+
+/// From the cell `start`, or else from the one that holds the origin.
+void SegmentCaster::trace_by_cells(const Vec3& origin, const Vec3& direction, int from_element,
+                                   Cell start, Hit& hit) const {
     hit.kind = Hit::Kind::lost;
     hit.point = origin;
     hit.direction = direction;
-    const double square = direction.x * direction.x + direction.z * direction.z;
-    if (!(square > 1e-24)) return hit; // along y: it meets nothing and never gets out
-    if (from_element >= 0 && starts_in_joint(origin, direction, from_element, hit)) return hit;
     Ray ray;
     ray.ox = origin.x;
     ray.oz = origin.z;
     ray.dx = direction.x;
     ray.dz = direction.z;
-    ray.inverse_square = 1.0 / square;
-    ray.slack = slack_ * std::sqrt(square) * ray.inverse_square;
+    ray.square = direction.x * direction.x + direction.z * direction.z;
+    if (!(ray.square > least_square)) return; // along y: it meets nothing and never gets out
     ray.inverse_x = safe_inverse(ray.dx);
     ray.inverse_z = safe_inverse(ray.dz);
-    ray.positive = 0;
     ray.from = from_element;
-    if (!enter(ray)) {
-        if (ray.dz > 0) finish_open(ray, hit);
-        return hit;
+    if (start.x != nowhere.x) {
+        ray.ix = start.x;
+        ray.iz = start.z;
+    } else {
+        if (from_element >= 0 && starts_in_joint(origin, direction, from_element, hit)) return;
+        if (!enter(ray)) {
+            if (ray.dz > 0) finish_open(ray, hit);
+            return;
+        }
     }
-    Best best;
-    bool seen = from_element >= 0 && ray.t == 0 && clears_own_cell(direction, from_element);
     for (;;) {
-        const int content = content_[ray.iz * next_z_ + ray.ix * next_x_];
-        const bool right = ray.rightwards(), up = ray.upwards();
-        double tx, tz;
+        const int content = content_at({ray.ix, ray.iz});
         if (content >= 0) {
-            if (!seen) test_runs(ray, &runs_[content], best);
-            seen = false;
-            tx = (x_min_ + (ray.ix + right) * cell_x_ - ray.ox) * ray.inverse_x;
-            tz = (z_min_ + (ray.iz + up) * cell_z_ - ray.oz) * ray.inverse_z;
-        } else {
-            const Room& room = rooms_[-1 - content];
-            tx = ((right ? room.x_high : room.x_low) - ray.ox) * ray.inverse_x;
-            tz = ((up ? room.z_high : room.z_low) - ray.oz) * ray.inverse_z;
-        }
-        ray.t = std::min(tx, tz);
-        if (best.run && best.t <= ray.t + ray.slack) {
-            finish_hit(ray, best, hit);
-            return hit;
-        }
-        if (content >= 0)
-            cross_cell(ray, tx < tz);
-        else
-            cross_room(ray, rooms_[-1 - content].cells, tx < tz);
-        if ((ray.ix < 0 || ray.ix >= nx_) && !cross_side(ray)) return hit;
-        if (ray.iz < 0) return hit;
-        if (ray.iz >= nz_) {
+            Crossing nearest;
+            if (test_runs(ray, &runs_[content], nearest)) {
+                finish_hit(ray, nearest, hit);
+                return;
+            }
+            cross_cell(ray);
+        } else if (content != outside) {
+            cross_room(ray, rooms_[-1 - content]);
+        } else if (ray.iz >= nz_) {
             finish_open(ray, hit);
-            return hit;
+            return;
+        } else if (ray.iz < 0 || !cross_side(ray)) {
+            return;
         }
     }
 }

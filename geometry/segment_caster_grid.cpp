@@ -22,9 +22,9 @@ void SegmentCaster::choose_grid(const Surface& surface) {
     }
     RILLE_CHECK(z_open_ >= high, "the source plane lies below the top of the surface");
     const double n = static_cast<double>(surface.size());
-    // About eight cells a segment: a run of five fits what crosses a cell of a trench.
+    // About sixteen cells a segment: a run of five fits what a cell of a trench lists.
     const double area = width_ * (high - low + 1e-3 * length);
-    const double size = std::max(1.5 * length / n, std::sqrt(area / (8 * n)));
+    const double size = std::max(1.2 * length / n, std::sqrt(area / (16 * n)));
     nx_ = columns_that_fit(width_ / size);
     cell_x_ = width_ / nx_;
     // The grid ends exactly at the top: a ray that rises above it is free.
@@ -59,70 +59,58 @@ int SegmentCaster::columns_that_fit(double wanted) const {
     return best;
 }
 
-void SegmentCaster::fill_cells(const Surface& surface) {
-    // Cells are padded so that round-off in a ray's cell never hides a segment from it.
-    const double pad = 1e-6, half = 0.5 + pad;
+int SegmentCaster::column(double x) const {
+    return std::clamp(static_cast<int>(std::floor(x)), 0, nx_ - 1);
+}
+int SegmentCaster::row(double z) const {
+    return std::clamp(static_cast<int>(std::floor(z)), 0, nz_ - 1);
+}
+
+/// Visits the cells, grown by `pad` on all sides, that an element crosses.
+template <class Visit>
+void SegmentCaster::visit_cells(int element, double pad, Visit visit) const {
+    const auto& e = ends_[element];
+    const double half = 0.5 + pad;
+    const double ax = (e[0] - x_min_) * per_cell_x_, az = (e[1] - z_min_) * per_cell_z_;
+    const double bx = (e[2] - x_min_) * per_cell_x_, bz = (e[3] - z_min_) * per_cell_z_;
+    const double sx = bx - ax, sz = bz - az;
+    const double reach = half * (std::fabs(sx) + std::fabs(sz));
+    const int last_x = column(std::max(ax, bx) + pad), last_z = row(std::max(az, bz) + pad);
+    for (int iz = row(std::min(az, bz) - pad); iz <= last_z; ++iz)
+        for (int ix = column(std::min(ax, bx) - pad); ix <= last_x; ++ix) {
+            const double off = sx * (iz + 0.5 - az) - sz * (ix + 0.5 - ax);
+            if (std::fabs(off) <= reach) visit(static_cast<std::size_t>(iz) * nx_ + ix);
+        }
+}
+
+/// For each cell that holds an element, all those in reach of it, in ascending order. Cells are
+/// padded so that round-off in a ray's cell never hides a segment from it.
+std::vector<std::vector<int>> SegmentCaster::list_elements() const {
     std::vector<std::vector<int>> lists(static_cast<std::size_t>(nx_) * nz_);
-    const auto column = [&](double x) {
-        return std::clamp(static_cast<int>(std::floor(x)), 0, nx_ - 1);
-    };
-    const auto row = [&](double z) {
-        return std::clamp(static_cast<int>(std::floor(z)), 0, nz_ - 1);
-    };
-    for (int e = 0; e < static_cast<int>(surface.size()); ++e) {
-        const double ax = (ends_[e][0] - x_min_) * per_cell_x_;
-        const double az = (ends_[e][1] - z_min_) * per_cell_z_;
-        const double bx = (ends_[e][2] - x_min_) * per_cell_x_;
-        const double bz = (ends_[e][3] - z_min_) * per_cell_z_;
-        const double sx = bx - ax, sz = bz - az;
-        const double reach = half * (std::fabs(sx) + std::fabs(sz));
-        const int last_x = column(std::max(ax, bx) + pad), last_z = row(std::max(az, bz) + pad);
-        for (int iz = row(std::min(az, bz) - pad); iz <= last_z; ++iz)
-            for (int ix = column(std::min(ax, bx) - pad); ix <= last_x; ++ix) {
-                const double off = sx * (iz + 0.5 - az) - sz * (ix + 0.5 - ax);
-                if (std::fabs(off) <= reach)
-                    lists[static_cast<std::size_t>(iz) * nx_ + ix].push_back(e);
-            }
-    }
-    skyline_.assign(surface.size(), 0.0);
+    std::vector<char> holds(lists.size(), 0);
+    for (int e = 0; e < static_cast<int>(ends_.size()); ++e)
+        visit_cells(e, cell_pad, [&](std::size_t cell) { holds[cell] = 1; });
+    for (int e = 0; e < static_cast<int>(ends_.size()); ++e)
+        visit_cells(e, list_reach, [&](std::size_t cell) {
+            if (holds[cell]) lists[cell].push_back(e);
+        });
+    return lists;
+}
+
+void SegmentCaster::fill_cells(const std::vector<std::vector<int>>& lists, const Surface& surface) {
     content_.assign(lists.size(), nothing);
     for (std::size_t c = 0; c < lists.size(); ++c) {
         if (lists[c].empty()) continue;
         content_[c] = static_cast<int>(runs_.size());
         add_runs(lists[c], surface);
-        bound_skyline(lists[c]);
     }
-}
-
-/// Raises the skyline of a cell's elements over what else the cell holds.
-void SegmentCaster::bound_skyline(const std::vector<int>& elements) {
-    constexpr std::size_t crowd = 32; // more are not worth the pairs
-    for (const int e : elements) {
-        if (elements.size() > crowd) skyline_[e] = std::numeric_limits<double>::infinity();
-        for (const int other : elements)
-            if (other != e) skyline_[e] = std::max(skyline_[e], skyline_over(e, other));
-    }
-}
-
-/// Largest tangent of the elevation at which any point of `element` can see `other`; infinite where
-/// it stands over the element itself.
-double SegmentCaster::skyline_over(int element, int other) const {
-    const auto &own = ends_[element], &seen = ends_[other];
-    const double sx = own[2] - own[0], sz = own[3] - own[1], square = sx * sx + sz * sz;
-    double most = 0;
-    for (int end = 0; end < 2; ++end) {
-        const double x = seen[2 * end] - own[0], z = seen[2 * end + 1] - own[1];
-        const double height = sx * z - sz * x, along = sx * x + sz * z;
-        if (height <= 0) continue;
-        const double apart = std::max(-along, along - square); // from the nearer end
-        most = std::max(most, apart > 0 ? height / apart : std::numeric_limits<double>::infinity());
-    }
-    return most;
 }
 
 SegmentCaster::Room SegmentCaster::room(const Rectangle& r) const {
-    return {x_min_ + r.x0 * cell_x_, x_min_ + (r.x1 + 1) * cell_x_, z_min_ + r.z0 * cell_z_,
-            z_min_ + (r.z1 + 1) * cell_z_, r};
+    return {{x_min_ + r.x[0] * cell_x_, x_min_ + (r.x[1] + 1) * cell_x_},
+            {z_min_ + r.z[0] * cell_z_, z_min_ + (r.z[1] + 1) * cell_z_},
+            r,
+            {{r.x[0] - 1, r.x[1] + 1}, {r.z[0] - 1, r.z[1] + 1}}};
 }
 
 /// Splits a cell's elements, in ascending order, into runs that share vertices.
@@ -189,7 +177,7 @@ std::vector<int> SegmentCaster::cells_by_clearance() const {
 
 SegmentCaster::Rectangle SegmentCaster::grow(int ix, int iz, const std::vector<int>& sums) const {
     const int stride = nx_ + 1;
-    Rectangle r{ix, ix, iz, iz};
+    Rectangle r{{ix, ix}, {iz, iz}};
     const auto empty = [&](int x0, int x1, int z0, int z1) {
         if (x0 < 0 || x1 >= nx_ || z0 < 0 || z1 >= nz_) return false;
         return sums[(z1 + 1) * stride + x1 + 1] - sums[z0 * stride + x1 + 1] -
@@ -198,22 +186,22 @@ SegmentCaster::Rectangle SegmentCaster::grow(int ix, int iz, const std::vector<i
     };
     for (bool grew = true; grew;) {
         grew = false;
-        if (empty(r.x0 - 1, r.x0 - 1, r.z0, r.z1)) --r.x0, grew = true;
-        if (empty(r.x1 + 1, r.x1 + 1, r.z0, r.z1)) ++r.x1, grew = true;
-        if (empty(r.x0, r.x1, r.z0 - 1, r.z0 - 1)) --r.z0, grew = true;
-        if (empty(r.x0, r.x1, r.z1 + 1, r.z1 + 1)) ++r.z1, grew = true;
+        if (empty(r.x[0] - 1, r.x[0] - 1, r.z[0], r.z[1])) --r.x[0], grew = true;
+        if (empty(r.x[1] + 1, r.x[1] + 1, r.z[0], r.z[1])) ++r.x[1], grew = true;
+        if (empty(r.x[0], r.x[1], r.z[0] - 1, r.z[0] - 1)) --r.z[0], grew = true;
+        if (empty(r.x[0], r.x[1], r.z[1] + 1, r.z[1] + 1)) ++r.z[1], grew = true;
     }
     return r;
 }
 
-void SegmentCaster::find_rectangles() {
+void SegmentCaster::find_rooms() {
     const std::vector<int> sums = occupancy_sums();
     for (const int c : cells_by_clearance()) {
         if (content_[c] != nothing) continue;
         const Rectangle r = grow(c % nx_, c / nx_, sums);
         const int content = -1 - static_cast<int>(rooms_.size());
-        for (int iz = r.z0; iz <= r.z1; ++iz)
-            for (int ix = r.x0; ix <= r.x1; ++ix)
+        for (int iz = r.z[0]; iz <= r.z[1]; ++iz)
+            for (int ix = r.x[0]; ix <= r.x[1]; ++ix)
                 if (content_[iz * nx_ + ix] == nothing) content_[iz * nx_ + ix] = content;
         rooms_.push_back(room(r));
     }
@@ -221,14 +209,14 @@ void SegmentCaster::find_rectangles() {
 
 /// The cells of a wall, which rays visit in no order, are brought together.
 void SegmentCaster::lay_out_cells() {
-    next_x_ = nz_ > nx_ ? nz_ : 1;
-    next_z_ = nz_ > nx_ ? 1 : nx_;
-    if (nz_ <= nx_) return;
+    const bool deep = nz_ > nx_;
+    next_x_ = deep ? nz_ + 2 : 1;
+    next_z_ = deep ? 1 : nx_ + 2;
     const std::vector<int> rows = std::move(content_);
-    content_.resize(rows.size());
+    content_.assign(static_cast<std::size_t>(nx_ + 2) * (nz_ + 2), outside);
     for (int iz = 0; iz < nz_; ++iz)
         for (int ix = 0; ix < nx_; ++ix)
-            content_[iz * next_z_ + ix * next_x_] = rows[iz * nx_ + ix];
+            content_[(iz + 1) * next_z_ + (ix + 1) * next_x_] = rows[iz * nx_ + ix];
 }
 
 } // namespace rille::geometry

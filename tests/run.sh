@@ -10,7 +10,7 @@ case "${1:-}" in
     --long) tier=(-C long) ;;
     *) echo "usage: bash tests/run.sh [--long]" >&2; exit 2 ;;
 esac
-bash .ci/install.sh
+bash .ci/install.sh tests
 cmake -S . -B build -DCMAKE_BUILD_TYPE=Release -DRILLE_BUILD_TESTS=ON >build-configure.log 2>&1 ||
     { cat build-configure.log; exit 1; }
 rm -f build-configure.log

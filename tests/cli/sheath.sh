@@ -21,7 +21,7 @@ head -n 1 "$work/out/sheath.csv" | grep -q 'flux_per_nm2_s,mean_energy_eV' || fa
 "$rille" sheath "$case" --json | python3 -c '
 import json, sys
 particles = json.load(sys.stdin)["plasmas"][0]["particles"]
-assert [p["particle"] for p in particles] == ["Cl2+", "Ar+"], particles
+assert [p["particle"] for p in particles] == ["Cl2+", "fast Cl2", "Ar+", "fast Ar"], particles
 assert all(p["energy_5_percent_eV"] < p["mean_energy_eV"] < p["energy_95_percent_eV"] for p in particles)
 ' || fail "the JSON"
 [ ! -e "$work/cache/rille" ] || fail "a closed form needs no cache"

@@ -203,14 +203,15 @@ TEST_CASE("line arrays become single openings; cd may be given at the mask top")
 }
 
 TEST_CASE("a plasma copies another; what is given replaces") {
-    const std::string text = with(read(trench), "chemistry:",
-                                  "  soft: {from: main, rf_bias: {mean_sheath: 40 V}, "
-                                  "neutrals: {Cl: {flux: 1e18 /cm2/s}}}\nchemistry:");
+    const std::string text =
+        with(read(trench), "chemistry:",
+             "  soft: {from: main, gas_temperature: 320 K, rf_bias: {mean_sheath: 40 V}, "
+             "neutrals: {Cl: {flux: 1e18 /cm2/s}}}\nchemistry:");
     const Case c = parse_case(text, "case.yaml", ".");
     const Plasma& soft = c.plasmas.at("soft");
     CHECK(soft.bias.value == 40);
     CHECK(soft.neutrals.at(0).flux == Approx(1e4));
-    CHECK(soft.neutrals.at(0).temperature_k == 300); // the whole key is replaced
+    CHECK(soft.neutrals.at(0).temperature_k == 320); // the whole key is replaced
     CHECK(soft.ion_flux == c.plasmas.at("main").ion_flux);
     CHECK(c.resolved_yaml.find("from:") == std::string::npos);
 }

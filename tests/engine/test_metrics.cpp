@@ -56,6 +56,7 @@ TEST_CASE("metrics: a tapered trench with a faceted mask against closed forms") 
     CHECK(value_of(m, "bottom cd") == Approx(width(-230)).margin(1e-9));
     CHECK_FALSE(value_of(m, "bottom cd") == Approx(1.02 * width(-230)).margin(1e-9));
     CHECK(value_of(m, "bottom cd_change") == Approx(width(-230) - 60).margin(1e-9));
+    CHECK(value_of(m, "bottom cd_loss") == Approx(width(-230) - 60).margin(1e-9));
     CHECK(value_of(m, "bow cd") == Approx(60).margin(1e-6));
     CHECK(value_of(m, "bow") == Approx(60 - width(-10)).margin(1e-6));
     CHECK(value_of(m, "bow depth") == Approx(0).margin(1e-6));
@@ -75,6 +76,52 @@ TEST_CASE("metrics: a tapered trench with a faceted mask against closed forms") 
     CHECK(m.clearing[1].film == "stop");
     CHECK_FALSE(m.clearing[1].cleared);
     CHECK(m.clearing[1].remaining_nm == Approx(6).margin(1e-9));
+}
+
+TEST_CASE("metrics: lines lose what openings gain") {
+    // Oracle: two trenches, 30 nm wide at -40 and at 40 nm in a period of 160 nm, so that every
+    // line is 50 nm wide as drawn. Walls that moved out by 1 and 2 nm (left trench) and by 3 and 4
+    // nm (right one), at a height that all four walls cross. Source: derived here. Tolerance: 1e-9
+    // nm.
+    Case c = tests::trench_case();
+    c.mask.openings[0].width_x = 30;
+    c.mask.openings[0].centre_x = -40;
+    c.mask.openings.push_back(c.mask.openings[0]);
+    c.mask.openings[1].name = "right";
+    c.mask.openings[1].centre_x = 40;
+    const auto measured = [&](double floor_right) {
+        SurfaceState state;
+        state.surface = tests::polyline(c.domain,
+                                        {{-80, 0, 120},
+                                         {-56, 0, 120},
+                                         {-56, 0, -246},
+                                         {-23, 0, -246},
+                                         {-23, 0, 120},
+                                         {22, 0, 120},
+                                         {22, 0, floor_right},
+                                         {59, 0, floor_right},
+                                         {59, 0, 120},
+                                         {80, 0, 120}},
+                                        1.0);
+        return measure(c, state);
+    };
+    const auto loss = [](const Metrics& m, const char* feature) {
+        const Metric* metric = m.find("bottom cd_loss", feature);
+        REQUIRE(metric != nullptr);
+        return metric->value;
+    };
+    const double middle = 2 + 3; // of the line between them
+    const std::string left = c.mask.openings[0].name;
+    c.domain.sides = geometry::Sides::mirror; // the outer lines meet their own images
+    CHECK(*loss(measured(-246), left.c_str()) == Approx(0.5 * (middle + 2 * 1)).margin(1e-9));
+    CHECK(*loss(measured(-246), "right") == Approx(0.5 * (middle + 2 * 4)).margin(1e-9));
+    c.domain.sides = geometry::Sides::periodic; // the outer line is one
+    CHECK(*loss(measured(-246), left.c_str()) == Approx(0.5 * (middle + 1 + 4)).margin(1e-9));
+    CHECK(*loss(measured(-246), "right") == Approx(0.5 * (middle + 1 + 4)).margin(1e-9));
+    CHECK(*measured(-246).find("bottom cd_change", "right")->value == Approx(7).margin(1e-9));
+    // The right trench does not come down to that height: there is no line beside either.
+    CHECK_FALSE(loss(measured(-100), left.c_str()));
+    CHECK_FALSE(loss(measured(-100), "right"));
 }
 
 TEST_CASE("metrics: bow is measured on film walls, and the mask does not count") {

@@ -28,7 +28,7 @@ constexpr double mtorr = 0.13332237; // [Pa]
 
 } // namespace
 
-// Oracle: the closed form knows no collisions: it serves below a tenth of the mean free path, and
+// Oracle: the closed form knows few collisions: it serves below a tenth of the mean free path, and
 // is refused beyond. Source: definition. Tolerance: none.
 TEST_CASE("collisions decide about the way through a sheath", "[sheath][arrival]") {
     CHECK(way_through(sheath_at(steady), argon_at(mtorr)) == SheathWay::free_fall);

@@ -40,6 +40,33 @@ Surface wavy(const Domain& domain, std::uint64_t seed, int waves) {
     return polyline(domain, points, 1.0);
 }
 
+/// A trench whose walls have slits, lower than a cell and tilted at random, one above the other.
+Surface slitted(const Domain& domain, std::uint64_t seed) {
+    const double half = 0.5 * domain.width_x(), wall = 8;
+    std::vector<Vec3> points{{-half, 0, 0}, {-wall, 0, 0}};
+    double z = -1;
+    std::uint64_t n = 0;
+    const auto any = [&](double low, double high) {
+        return low + (high - low) * uniform(seed, ++n);
+    };
+    std::vector<Vec3> right;
+    for (; z > -30; z -= any(1.5, 4)) {
+        const double height = any(0.02, 1.4), deep = any(0.5, 12), tilt = any(-0.1, 0.1) * deep;
+        points.insert(points.end(), {{-wall, 0, z},
+                                     {-wall - deep, 0, z + tilt},
+                                     {-wall - deep, 0, z + tilt - height * any(0.1, 1)},
+                                     {-wall, 0, z - height}});
+        right.insert(right.end(), {{wall, 0, z},
+                                   {wall + deep, 0, z + tilt},
+                                   {wall + 1.05 * deep, 0, z + tilt - 0.5 * height},
+                                   {wall, 0, z - height}});
+    }
+    points.insert(points.end(), {{-wall, 0, -40}, {any(-2, 2), 0, any(-44, -40)}, {wall, 0, -40}});
+    points.insert(points.end(), right.rbegin(), right.rend());
+    points.insert(points.end(), {{wall, 0, 0}, {half, 0, 0}});
+    return polyline(domain, points, any(0.4, 3));
+}
+
 struct Crossing {
     double t = 1e300;
     int element = -1;
@@ -102,6 +129,37 @@ TEST_CASE("extruded rays against brute force over explicit images", "[rays]") {
             CHECK(hits > 500);
             CHECK(caster.lost() == 0);
         }
+}
+
+TEST_CASE("extruded rays between surfaces less than a cell apart", "[rays]") {
+    // Oracle: every segment of seven explicit images tried in long double.
+    // Source: derived here.
+    // Tolerance: as above.
+    int hits = 0;
+    for (std::uint64_t seed = 1; seed <= 12; ++seed) {
+        const Sides sides = seed % 2 ? Sides::mirror : Sides::periodic;
+        const Domain domain = period(Symmetry::extruded, sides, 60, 1.0);
+        const Surface s = slitted(domain, seed);
+        const RayCaster caster(domain, s, 2.0);
+        int wrong = 0;
+        for (int ray = 0; ray < 4000; ++ray) {
+            const int e = static_cast<int>(uniform(seed, 10 * ray + 1000) * s.size());
+            const Vec3 a = s.vertices[s.corners[e][0]], b = s.vertices[s.corners[e][1]];
+            const Vec3 o = a + (b - a) * (0.01 + 0.98 * uniform(seed, 10 * ray + 1001));
+            const Vec3 d = cosine_direction(s.normal[e], uniform(seed, 10 * ray + 1002),
+                                            uniform(seed, 10 * ray + 1003));
+            const Hit hit = caster.trace(o, d, e);
+            const Crossing wanted = brute_force(domain, s, o, d, e);
+            wrong += (wanted.element < 0) != (hit.kind == Hit::Kind::open);
+            if (wanted.element < 0 || hit.kind != Hit::Kind::surface) continue;
+            ++hits;
+            wrong += std::fabs(hit.distance - wanted.t) > 1e-7;
+            wrong += std::abs(hit.element - wanted.element) > 1;
+        }
+        CHECK(wrong == 0);
+        CHECK(caster.lost() == 0);
+    }
+    CHECK(hits > 30000);
 }
 
 TEST_CASE("extruded rays hit where geometry says", "[rays]") {

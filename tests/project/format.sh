@@ -1,6 +1,6 @@
 #!/usr/bin/env bash
 # SPDX-License-Identifier: Apache-2.0
-# Every source is formatted as .clang-format says, by the version that packages.txt names. The same
+# Every source is formatted as .clang-format says, by the version that packages-tests.txt names. The same
 # check must find a fault that is put into a copy.
 set -euo pipefail
 root=$(cd "$(dirname "$0")/../.." && pwd)

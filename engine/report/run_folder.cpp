@@ -1,0 +1,130 @@
+// SPDX-License-Identifier: Apache-2.0
+#include "engine/report/run_folder.hpp"
+
+#include "engine/case.hpp"
+#include "engine/csv_rows.hpp"
+#include "engine/number_text.hpp"
+#include "engine/output_folder.hpp"
+#include "engine/output_names.hpp"
+#include "engine/vtk_files.hpp"
+
+#include <algorithm>
+#include <cstdlib>
+#include <filesystem>
+#include <limits>
+
+namespace rille::engine {
+namespace {
+
+namespace fs = std::filesystem;
+using nlohmann::json;
+
+Verdict verdict_of(const std::string& word) {
+    for (const Verdict verdict : {Verdict::met, Verdict::missed})
+        if (word == verdict_name(verdict)) return verdict;
+    return Verdict::undecided;
+}
+
+/// The file as JSON, null if it is not there.
+json read_json(const std::string& path) {
+    if (!fs::exists(path)) return nullptr;
+    try {
+        return json::parse(read_file(path));
+    } catch (const json::exception& error) {
+        throw OutputError(path, "reading a result", error.what());
+    }
+}
+
+double number_or_nan(const std::string& text) {
+    char* end = nullptr;
+    const double value = std::strtod(text.c_str(), &end);
+    return end != text.c_str() && *end == '\0' ? value : std::numeric_limits<double>::quiet_NaN();
+}
+
+void read_metrics(RunFolder& folder, const Case& c) {
+    const std::string path = (fs::path(folder.path) / output_names::metrics).string();
+    const json written = read_json(path);
+    folder.has_metrics = true;
+    if (!written.is_null()) {
+        try {
+            folder.metrics = metrics_from_json(written);
+        } catch (const json::exception& error) {
+            throw OutputError(path, "reading the metrics of a run", error.what());
+        }
+    } else if (!folder.frames.empty()) {
+        folder.metrics = measure(c, read_vtp(c, folder.frames.back()));
+    } else {
+        folder.has_metrics = false;
+    }
+}
+
+} // namespace
+
+const std::vector<double>* HistoryTable::find(const std::string& name) const {
+    for (std::size_t i = 0; i < names.size(); ++i)
+        if (names[i] == name) return &values[i];
+    return nullptr;
+}
+
+RunFolder read_run_folder(const std::string& path, const Case& c) {
+    RunFolder folder;
+    folder.path = path;
+    folder.frames = frame_files(path);
+    folder.record = read_json((fs::path(path) / output_names::record).string());
+    read_metrics(folder, c);
+    const fs::path history = fs::path(path) / output_names::history;
+    if (fs::exists(history)) folder.history = history_table(read_file(history.string()));
+    folder.can_be_resumed = fs::exists(fs::path(path) / output_names::state);
+    return folder;
+}
+
+std::vector<std::string> frame_files(const std::string& folder) {
+    std::vector<std::string> files;
+    std::error_code missing;
+    const fs::path frames = fs::path(folder) / output_names::frames;
+    for (const auto& entry : fs::directory_iterator(frames, missing))
+        if (entry.path().extension() == ".vtp") files.push_back(entry.path().string());
+    std::sort(files.begin(), files.end(), [](const std::string& a, const std::string& b) {
+        return a.size() != b.size() ? a.size() < b.size() : a < b; // numbers may outgrow 4 digits
+    });
+    return files;
+}
+
+Metrics metrics_from_json(const json& written) {
+    Metrics metrics;
+    metrics.time_s = written.at("time_s");
+    for (const json& m : written.at("metrics")) {
+        Metric metric{m.at("name"), m.at("feature"), {}, m.at("unit"), 0, "", ""};
+        if (!m.at("value").is_null()) metric.value = m.at("value").get<double>();
+        if (m.at("sampling_error").is_number()) metric.sampling_error = m.at("sampling_error");
+        metric.definition = m.value("definition", "");
+        metric.note = m.value("note", "");
+        metrics.metrics.push_back(metric);
+    }
+    for (const json& t : written.at("targets"))
+        metrics.targets.push_back({t.at("target"), t.at("metric"), t.at("feature"),
+                                   verdict_of(t.at("verdict")), verdict_of(t.at("by_numbers")),
+                                   t.at("reason")});
+    for (const json& film : written.at("clearing"))
+        metrics.clearing.push_back(
+            {film.at("feature"), film.at("film"), film.at("cleared"), film.at("remaining_nm")});
+    return metrics;
+}
+
+HistoryTable history_table(const std::string& csv) {
+    HistoryTable table;
+    const CsvRows rows = split_csv(csv, "history");
+    if (rows.rows.empty()) return table;
+    for (const CsvCell& name : rows.rows.front())
+        table.names.push_back(name.text);
+    table.values.resize(table.names.size());
+    for (std::size_t r = 1; r < rows.rows.size(); ++r) {
+        const CsvRow& row = rows.rows[r]; // empty cells at its end may be missing
+        if (row.size() > table.names.size()) continue;
+        for (std::size_t i = 0; i < table.names.size(); ++i)
+            table.values[i].push_back(number_or_nan(i < row.size() ? row[i].text : ""));
+    }
+    return table;
+}
+
+} // namespace rille::engine

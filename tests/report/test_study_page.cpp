@@ -1,0 +1,222 @@
+// SPDX-License-Identifier: Apache-2.0
+#include "engine/report/study_page.hpp"
+#include "engine/report/study_parts.hpp"
+#include "tests/report/chart_samples.hpp"
+#include "tests/report/study_samples.hpp"
+
+#include <catch2/catch.hpp>
+
+using namespace rille;
+using namespace rille::engine;
+using tests::StudySample;
+using tests::TemporaryFolder;
+
+namespace {
+
+/// Leaves pages for the eye and the browser where RILLE_TEST_PICTURES names a folder.
+std::string page_of(const std::string& folder, const std::string& keep_as = "") {
+    const std::string html = page_html(study_report(folder).page);
+    const char* keep = std::getenv("RILLE_TEST_PICTURES");
+    if (keep && !keep_as.empty())
+        std::ofstream(std::string(keep) + "/" + keep_as + ".html") << html;
+    return html;
+}
+
+bool has(const std::string& text, const std::string& part) {
+    return text.find(part) != std::string::npos;
+}
+
+std::string some_fail(std::size_t i) {
+    return i == 3 ? "failed" : i == 11 ? "killed" : i < 2 ? "not cleared" : i == 39 ? "" : "done";
+}
+
+} // namespace
+
+TEST_CASE("study page: the curve, maps, profiles, table and failures") {
+    const TemporaryFolder folder;
+    StudySample sample;
+    sample.status = some_fail;
+    write_study(folder.path, sample);
+    const StudyReport report = study_report(folder.path);
+    const std::string html = page_of(folder.path, "study");
+    for (const char* part :
+         {"39 of 40 points finished", "bottom CD loss against amplitude",
+          "CD loss against rf bias &lt;five openings&gt;", "pressure of main stays 10 mTorr",
+          "14 published", "id=\"final-profiles\"", "id=\"maps\"", "id=\"process-window\"",
+          "id=\"points\"", "id=\"failures\"", "a &quot;rate&quot; that is not finite",
+          "Open markers: not cleared", "No value from 2 points: 0004, 0012.", "rises throughout",
+          "not a released recipe"})
+        CHECK(has(html, part));
+    REQUIRE_FALSE(report.figures.empty());
+    CHECK(report.figures[0].id == "answer");
+    for (const Figure& figure : report.figures)
+        for (const std::string* svg : {&figure.svg, &figure.narrow, &figure.slide}) {
+            CHECK(tests::text_faults(*svg) == std::vector<std::string>{});
+            CHECK(
+                has(*svg, "pressure of main stays 10 mTorr")); // every figure says what is constant
+        }
+}
+
+TEST_CASE("study page: the table has the digits of results.csv") {
+    const TemporaryFolder folder;
+    StudySample sample;
+    sample.status = some_fail;
+    write_study(folder.path, sample);
+    const StudyView view = read_study_view(folder.path);
+    const nlohmann::json data = nlohmann::json::parse(points_json(view));
+    REQUIRE(data["rows"] == 39);
+    REQUIRE(data["columns"].size() == view.table.columns.size());
+    for (std::size_t c = 0; c < view.table.columns.size(); ++c)
+        for (std::size_t row = 0; row < view.table.rows(); ++row) {
+            const nlohmann::json& cells = data["cells"][c];
+            const std::string text(view.table.text(row, c));
+            if (cells.is_array()) {
+                CHECK(cells[row].is_null() == text.empty());
+                if (!text.empty()) CHECK(cells[row].get<double>() == std::stod(text));
+            } else {
+                CHECK(cells["words"][cells["at"][row].get<std::size_t>()] == text);
+            }
+        }
+    CHECK(data["cells"][view.y.value()][5].get<double>() == sample.loss(5));
+}
+
+TEST_CASE("study page: an empty one, one point, all failed, nothing asked") {
+    const TemporaryFolder folder;
+    StudySample sample;
+    SECTION("nothing has been run") {
+        sample.status = [](std::size_t) { return ""; };
+        write_study(folder.path, sample);
+        const std::string html = page_of(folder.path, "study_empty");
+        CHECK(has(html, "No point of this study has been run yet"));
+        CHECK(has(html, "0 of 40 points finished"));
+    }
+    SECTION("begun, without a table of results") {
+        write_study(folder.path, sample);
+        std::filesystem::remove(folder.path + "/results.csv");
+        const std::string html = page_of(folder.path);
+        CHECK(has(html, "No point of this study has been run yet"));
+        CHECK(has(html, "pressure of main stays 10 mTorr"));
+    }
+    SECTION("one point") {
+        sample.amplitudes = {300};
+        sample.openings = {60};
+        write_study(folder.path, sample);
+        const StudyReport report = study_report(folder.path);
+        CHECK(report.figures.size() >= 2);
+        CHECK(has(page_of(folder.path, "study_one"), "1 of 1 points finished"));
+    }
+    SECTION("all failed") {
+        sample.status = [](std::size_t i) { return i % 2 ? "failed" : "killed"; };
+        write_study(folder.path, sample);
+        const std::string html = page_of(folder.path, "study_failed");
+        CHECK(has(html, "No point has a value of bottom CD loss"));
+        CHECK(has(html, "id=\"failures\""));
+    }
+    SECTION("no curve asked for") {
+        sample.asks = false;
+        write_study(folder.path, sample);
+        const std::string html = page_of(folder.path);
+        CHECK(has(html, "asks for no curve"));
+        CHECK(has(html, "id=\"points\""));
+    }
+    SECTION("not a study") {
+        CHECK_THROWS_AS(study_report(folder.path), OutputError);
+    }
+    SECTION("a damaged manifest") {
+        write_study(folder.path, sample);
+        std::ofstream(folder.path + "/study.json") << "{\"format\": 1";
+        CHECK_THROWS_AS(study_report(folder.path), OutputError);
+    }
+}
+
+TEST_CASE("study page: measured rows lie beside their points") {
+    const TemporaryFolder folder;
+    const StudySample sample;
+    write_study(folder.path, sample);
+    std::filesystem::create_directories(folder.path + "/inputs");
+    std::ofstream(folder.path + "/inputs/cd.csv")
+        << "amplitude [kV],cd [nm],mean_nm,sigma_nm,n\n0.3,60,3.2,0.4,9\n0.6,60,4.4,0.5,9\n"
+           "0.35,60,9,1,9\n";
+    nlohmann::json manifest = nlohmann::json::parse(read_file(folder.path + "/study.json"));
+    manifest["comparison"] = {{"file", "inputs/cd.csv"}, {"join", {0, 1}}, {"value", "mean_nm"},
+                              {"sigma", "sigma_nm"},     {"sites", "n"},   {"tolerance", 1e-6}};
+    std::ofstream(folder.path + "/study.json") << manifest.dump();
+    const MeasuredRows rows = measured_rows(read_study_view(folder.path));
+    REQUIRE(rows.rows.size() == 2);
+    CHECK(rows.unmatched == 1);
+    CHECK(rows.rows[0].rows == std::vector<std::size_t>{18}); // 300 V of the third opening
+    CHECK(rows.rows[0].sigma == 0.4);
+    const std::string html = page_of(folder.path, "study_measured");
+    CHECK(has(html, "60 nm, measured"));
+    CHECK(has(html, "1 measured row belongs to no point"));
+}
+
+TEST_CASE("study page: answer.svg, answer.png and report.html are written") {
+    const TemporaryFolder folder;
+    write_study(folder.path, StudySample{});
+    OutputFolder out(folder.path, OutputFolder::Existing::keep);
+    write_study_report(out);
+    CHECK(has(read_file(folder.path + "/answer.svg"), "bottom CD loss (nm)"));
+    const std::string png = read_file(folder.path + "/answer.png");
+    CHECK(png.substr(1, 3) == "PNG");
+    // Width and height stand big-endian in the first chunk.
+    const auto at = [&](std::size_t i) { return static_cast<unsigned char>(png[i]); };
+    CHECK(at(18) * 256 + at(19) == 1920);
+    CHECK(at(22) * 256 + at(23) == 1080);
+    CHECK(has(read_file(folder.path + "/report.html"), "<!DOCTYPE html>"));
+}
+
+TEST_CASE("study page: outlines of profile.csv keep their shape") {
+    const Section section = profile_outline(tests::profile_sample(60, 200), 0.1);
+    REQUIRE(section.size() == 1);
+    CHECK_FALSE(section[0].closed);
+    CHECK(section[0].points.size() < 20);
+    CHECK(section[0].points.front()[0] == Approx(-120));
+    CHECK(section[0].points.back()[0] == Approx(120).margin(1));
+    double left = 0, right = 0;
+    REQUIRE(walls_at(section, -100, 0, left, right));
+    CHECK(right - left == Approx(60).margin(0.2));
+    CHECK(profile_outline("", 0.1).empty());
+    CHECK(profile_outline("nothing of the kind\n1,2\n", 0.1).empty());
+}
+
+TEST_CASE("study page: slices of further axes, plans that are no grid") {
+    const TemporaryFolder folder;
+    StudySample sample;
+    sample.amplitudes.clear();
+    sample.openings = {60};
+    for (int i = 0; i < 60; ++i) // as of a hypercube: no two alike
+        sample.amplitudes.push_back(100 + 11.7 * i);
+    write_study(folder.path, sample);
+    nlohmann::json manifest = nlohmann::json::parse(read_file(folder.path + "/study.json"));
+    manifest["answer"]["line_per"] = nullptr;
+    std::ofstream(folder.path + "/study.json") << manifest.dump();
+    const StudyView view = read_study_view(folder.path);
+    CHECK(study_slices(view, {0}, 12).size() == 1);
+    CHECK(answer_charts(view, {}).size() == 1);
+    sample.amplitudes = {100, 200, 300};
+    sample.openings = {30, 60};
+    write_study(folder.path, sample);
+    std::ofstream(folder.path + "/study.json") << manifest.dump();
+    const StudyView grid = read_study_view(folder.path);
+    const auto charts = answer_charts(grid, {}); // cd is a further axis: a slice for each value
+    REQUIRE(charts.size() == 2);
+    CHECK(charts[0].first == "CD 30 nm");
+}
+
+TEST_CASE("study page: ten thousand points stay small and quick") {
+    const TemporaryFolder folder;
+    StudySample sample;
+    sample.amplitudes.clear();
+    sample.openings.clear();
+    for (int i = 0; i < 100; ++i) {
+        sample.amplitudes.push_back(100 + 7 * i);
+        sample.openings.push_back(20 + 3 * i);
+    }
+    sample.more_metrics = 15;
+    sample.has_profiles = false;
+    write_study(folder.path, sample);
+    const std::string html = page_of(folder.path, "study_10000");
+    CHECK(html.size() < 16e6);
+    CHECK(has(html, "10000 of 10000 points finished"));
+}
