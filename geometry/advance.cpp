@@ -2,6 +2,7 @@
 #include "geometry/advance_call.hpp"
 #include "geometry/band_topology.hpp"
 #include "geometry/check.hpp"
+#include "geometry/ranges.hpp"
 
 #include <algorithm>
 #include <array>
@@ -40,14 +41,21 @@ double Advance::change(const Slopes& s, const RowPair& row, const RateWindow& wi
 }
 
 /// Calls take(cell, dphi/dt, speed) for the cells of a range that move, but for layered ones.
+/// first: the stage that finds the dissipation of each.
 template <class Take>
-void Advance::sweep(const double* phi, std::size_t begin, std::size_t end, const Take& take) const {
+void Advance::sweep(const double* phi, bool first, std::size_t begin, std::size_t end,
+                    const Take& take) {
     std::array<FluxCell, 32> cells;
     std::size_t count = 0;
     const auto finish = [&] {
-        lax_friedrichs(tables_, extruded_, cells.data(), static_cast<int>(count));
-        for (std::size_t n = 0; n < count; ++n)
+        if (first)
+            lax_friedrichs(tables_, extruded_, cells.data(), static_cast<int>(count));
+        else
+            lax_friedrichs_as_before(tables_, extruded_, cells.data(), static_cast<int>(count));
+        for (std::size_t n = 0; n < count; ++n) {
+            if (first) dissipation_[cells[n].cell] = cells[n].dissipation;
             take(cells[n].cell, cells[n].change, cells[n].speed);
+        }
         count = 0;
     };
     for (std::size_t c = begin; c < end; ++c) {
@@ -68,6 +76,7 @@ void Advance::sweep(const double* phi, std::size_t begin, std::size_t end, const
         next.rows = &row;
         next.window = &window;
         next.slopes = slopes(phi, c, 0, true);
+        if (!first) next.dissipation = dissipation_[c];
         if (count == cells.size()) finish();
     }
     finish();
@@ -107,6 +116,15 @@ Slopes Advance::special_slopes(const double* phi, const LayeredCell& at) const {
     return s;
 }
 
+/// Calls body(l) for each layered cell: they are few, and each takes long.
+template <class Body>
+void Advance::over_layered(const Body& body) {
+    over_ranges(layered_.size(), 128, [&](std::size_t begin, std::size_t end) {
+        for (std::size_t l = begin; l < end; ++l)
+            body(l);
+    });
+}
+
 Speed Advance::first_stage() {
     Speed most;
     const double* phi = band_.phi.data();
@@ -115,7 +133,7 @@ Speed Advance::first_stage() {
         const double ease = limits_.max_share / std::min(2 * limits_.max_share, smooth_share);
         double waves = 0, fastest = 0;
         std::fill(slope_.begin() + begin, slope_.begin() + end, 0.0);
-        sweep(phi, begin, end, [&](std::size_t c, double change, const Speed& speed) {
+        sweep(phi, true, begin, end, [&](std::size_t c, double change, const Speed& speed) {
             slope_[c] = change;
             waves = std::max(waves, speed.smooth ? ease * speed.waves : speed.waves);
             if (std::fabs(phi[c]) < h_) fastest = std::max(fastest, std::fabs(speed.rate));
@@ -124,8 +142,12 @@ Speed Advance::first_stage() {
         return waves;
     });
     most.rate = *std::max_element(front.begin(), front.end());
-    for (LayeredCell& cell : layered_)
-        find_layers(cell, most);
+    std::vector<Speed> layered(layered_.size());
+    over_layered([&](std::size_t l) { layered[l] = find_layers(layered_[l]); });
+    for (const Speed& speed : layered) {
+        most.waves = std::max(most.waves, speed.waves);
+        most.rate = std::max(most.rate, speed.rate);
+    }
     return most;
 }
 
@@ -139,12 +161,10 @@ double Advance::choose_step(const Speed& most) const {
 }
 
 void Advance::step(double dt) {
-    for_ranges(layered_.size(), [&](std::size_t begin, std::size_t end) {
-        for (std::size_t l = begin; l < end; ++l) {
-            const std::size_t c = layered_[l].cell;
-            slope_[c] = layered_change(special_slopes(band_.phi.data(), layered_[l]),
-                                       layered_[l].layers, fan_[c], dt);
-        }
+    over_layered([&](std::size_t l) {
+        const std::size_t c = layered_[l].cell;
+        slope_[c] = layered_change(special_slopes(band_.phi.data(), layered_[l]),
+                                   layered_[l].layers, fan_[c], dt);
     });
     for_ranges(band_.size(), [&](std::size_t begin, std::size_t end) {
         for (std::size_t c = begin; c < end; ++c)
@@ -152,19 +172,17 @@ void Advance::step(double dt) {
     });
     const double* next = next_.data();
     for_ranges(band_.size(), [&](std::size_t begin, std::size_t end) {
-        sweep(next, begin, end, [&](std::size_t c, double second, const Speed&) {
+        sweep(next, false, begin, end, [&](std::size_t c, double second, const Speed&) {
             band_.phi[c] += 0.5 * dt * (slope_[c] + second);
         });
     });
-    for_ranges(layered_.size(), [&](std::size_t begin, std::size_t end) {
-        for (std::size_t l = begin; l < end; ++l) {
-            const std::size_t c = layered_[l].cell;
-            const LayeredCell& at = layered_[l];
-            const double second = layered_change(special_slopes(next, at), at.layers, fan_[c], dt);
-            const double time = report_.time + dt - time_of_refresh_;
-            band_.phi[c] = std::min(band_.phi[c] + 0.5 * dt * (slope_[c] + second),
-                                    at.wall + at.wall_rate * time);
-        }
+    over_layered([&](std::size_t l) {
+        const LayeredCell& at = layered_[l];
+        const std::size_t c = at.cell;
+        const double second = layered_change(special_slopes(next, at), at.layers, fan_[c], dt);
+        const double time = report_.time + dt - time_of_refresh_;
+        band_.phi[c] =
+            std::min(band_.phi[c] + 0.5 * dt * (slope_[c] + second), at.wall + at.wall_rate * time);
     });
     move_elements(dt);
 }

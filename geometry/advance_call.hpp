@@ -13,9 +13,11 @@
 
 namespace rille::geometry {
 
-constexpr int layered_row = -2;         ///< marks cells whose row depends on where the front is
-constexpr double layer_reach = 0.6;     ///< [cells] more than any sub-step moves
-constexpr double refresh_move = 0.75;   ///< [cells] nearest elements and band hold for this far
+constexpr int layered_row = -2;       ///< marks cells whose row depends on where the front is
+constexpr double layer_reach = 0.6;   ///< [cells] more than any sub-step moves
+constexpr double refresh_move = 0.75; ///< [cells] nearest elements and band hold for this far
+/// [cells] from the foot of a cell: what it may meet until the next refresh
+constexpr double foot_reach = refresh_move + 2 * layer_reach + 0.5;
 constexpr unsigned direct_sides = 0x3f; ///< of LayeredCell::unseen: without the second neighbours
 constexpr double fan_cosine = 0.985; ///< 10 degrees: the front turns by more at the foot of a fan
 constexpr double resting_share =
@@ -54,11 +56,15 @@ public:
 
 private:
     void refresh();
-    void classify_cells(const ClosestElements&);
+    void classify_cells();
     void classify_elements();
-    BetweenCentres place_of(std::size_t c, const ClosestElements&) const;
+    Vec3 node(std::size_t c) const;
+    Vec3 nearest(std::size_t c) const; ///< point of its element
+    Foot foot(std::size_t c) const;
+    bool meets_layers(std::size_t c) const;
+    BetweenCentres place_of(std::size_t c) const;
     unsigned resting_sides(std::size_t c) const;
-    bool in_fan(std::size_t c, const ClosestElements&) const;
+    bool in_fan(std::size_t c) const;
     void find_wall(LayeredCell&) const;
     Slopes special_slopes(const double* phi, const LayeredCell&) const;
     Slopes slopes(const double* phi, std::size_t c, unsigned unseen, bool directional) const {
@@ -66,14 +72,16 @@ private:
         return extruded_ ? slopes_2d(band_, phi, c, 1 / h_, unseen, limiter)
                          : slopes_3d(band_, phi, c, 1 / h_, unseen, limiter);
     }
-    void find_even_cells(const ClosestElements&);
+    void find_even_cells();
     double change(const Slopes&, const RowPair&, const RateWindow&, bool fan, Speed&) const;
     void blend(RowPair&, const BetweenCentres&) const;
     template <class Take>
-    void sweep(const double* phi, std::size_t begin, std::size_t end, const Take& take) const;
+    void sweep(const double* phi, bool first, std::size_t begin, std::size_t end, const Take& take);
+    template <class Body>
+    void over_layered(const Body& body);
     double layered_change(const Slopes&, const Layers&, bool fan, double dt) const;
     Speed first_stage();
-    void find_layers(LayeredCell&, Speed&);
+    Speed find_layers(LayeredCell&) const; ///< its largest speeds
     double choose_step(const Speed&) const;
     void step(double dt);
     void move_elements(double dt);
@@ -93,14 +101,17 @@ private:
     AdvanceReport report_;
     double moved_since_refresh_ = 0; ///< [cells]
     double time_of_refresh_ = 0;     ///< [s]
-    std::vector<int> element_;
+    std::vector<Plate> plates_;      ///< the elements where they were at the last refresh
+    std::vector<int> element_;       ///< of each cell, -1: none
     std::vector<RowPair> row_;
     /// extruded: whether the nearest point is a sharp corner; full: see find_even_cells.
     std::vector<char> fan_;
     std::vector<double> slope_, next_; ///< dphi/dt at the first stage; phi after it
+    std::vector<Dissipation> dissipation_;
     std::vector<LayeredCell> layered_;
     std::vector<int> layered_elements_;
     std::vector<Tilt> element_tilt_;
+    std::vector<char> clear_; ///< no interface or grown film within reach of an element's cells
     std::vector<RateWindow> element_window_;      ///< of the material below it, about its normal
     std::vector<double> element_rate_, own_rate_; ///< own: before films are peeled
 };

@@ -12,42 +12,59 @@ namespace rille::geometry {
 
 namespace {
 constexpr double even_share = 1.02; ///< a neighbour's rate may be larger by as much
+constexpr double cell_reach = 4;    ///< [cells] few cells are farther than that from their element
 } // namespace
 
 /// Nearest elements, redistancing and rows for the present band; `surface` displaced by `moved`.
 void Advance::refresh() {
     const bool first = report_.sub_steps == 0;
     if (!first) front_.rebuild();
-    const ClosestElements closest =
+    ClosestElements closest =
         closest_elements(band_, surface_, first ? std::vector<double>() : report_.moved);
     if (first) report_.redistance_shift = redistance(band_, surface_, closest);
+    plates_ = std::move(closest.plates);
+    element_ = std::move(closest.element);
     // Cells that still say near where nothing of the front is left drop out of the band. (Cells
     // farther out may have no element in reach, beyond a sharp corner: they keep their value.)
-    for (std::size_t c = 0; c < band_.size(); ++c)
-        if (closest.element[c] < 0 && std::fabs(band_.phi[c]) < 1.5 * h_)
-            band_.phi[c] = std::copysign(4 * h_, band_.phi[c]);
+    for_ranges(band_.size(), [&](std::size_t begin, std::size_t end) {
+        for (std::size_t c = begin; c < end; ++c)
+            if (element_[c] < 0 && std::fabs(band_.phi[c]) < 1.5 * h_)
+                band_.phi[c] = std::copysign(4 * h_, band_.phi[c]);
+    });
     classify_elements();
-    classify_cells(closest);
-    find_even_cells(closest);
-    slope_.assign(band_.size(), 0.0);
-    next_ = band_.phi;
+    classify_cells();
+    find_even_cells();
+    slope_.resize(band_.size());
+    next_.resize(band_.size());
+    dissipation_.resize(band_.size());
     moved_since_refresh_ = 0;
     time_of_refresh_ = report_.time;
 }
 
+Vec3 Advance::node(std::size_t c) const {
+    const Band::Cell& cell = band_.cells[c];
+    return band_.domain.node(cell.i, cell.j, cell.k);
+}
+
+Vec3 Advance::nearest(std::size_t c) const {
+    return nearest_point(band_.domain, plates_[element_[c]], node(c));
+}
+
+Foot Advance::foot(std::size_t c) const {
+    return foot_of(node(c), band_.phi[c], nearest(c), surface_.normal[element_[c]], h_);
+}
+
 /// full: whether phi of a cell is the time at which the front passes it, but for the rate: where
 /// the rate does not depend on the normal and no neighbour has a faster one to spread from.
-void Advance::find_even_cells(const ClosestElements& closest) {
+void Advance::find_even_cells() {
     if (extruded_) return;
     std::vector<double> rate(band_.size(), 0.0); // NaN where it depends on the normal
     for_ranges(band_.size(), [&](std::size_t begin, std::size_t end) {
         for (std::size_t c = begin; c < end; ++c) {
             const int e = element_[c];
             if (e < 0) continue;
-            const Band::Cell& cell = band_.cells[c];
-            const Foot foot = foot_of(band_.domain.node(cell.i, cell.j, cell.k), band_.phi[c],
-                                      closest.foot[c], surface_.normal[e], h_);
-            const int row = row_[c].row == layered_row ? finder_.row_below(e, foot) : row_[c].row;
+            const int row =
+                row_[c].row == layered_row ? finder_.row_below(e, foot(c)) : row_[c].row;
             rate[c] = tables_.constant(row) ? tables_.rate(row, 0)
                                             : std::numeric_limits<double>::quiet_NaN();
         }
@@ -61,55 +78,60 @@ void Advance::find_even_cells(const ClosestElements& closest) {
     });
 }
 
-void Advance::classify_cells(const ClosestElements& closest) {
-    const double reach = (refresh_move + 2 * layer_reach + 0.5) * h_;
-    element_ = closest.element;
-    row_.assign(band_.size(), {});
-    fan_.assign(band_.size(), 0);
+void Advance::classify_cells() {
+    row_.resize(band_.size());
+    fan_.resize(band_.size());
     for_ranges(band_.size(), [&](std::size_t begin, std::size_t end) {
         for (std::size_t c = begin; c < end; ++c) {
+            row_[c] = {};
+            fan_[c] = 0;
             const int e = element_[c];
             if (e < 0) continue;
-            const Band::Cell& cell = band_.cells[c];
-            const double z = (cell.k + 0.5) * h_, z_foot = closest.foot[c].z;
-            const double middle = 0.5 * (z + z_foot), spread = 0.5 * std::fabs(z - z_foot);
-            if (finder_.near(e, middle, reach + spread) || resting_sides(c))
-                row_[c].row = layered_row;
-            else
-                row_[c].row = finder_.row_below(e, {closest.foot[c], -surface_.normal[e], false});
-            blend(row_[c], place_of(c, closest));
-            fan_[c] = in_fan(c, closest);
+            row_[c].row =
+                meets_layers(c) || resting_sides(c) ? layered_row : element_window_[e].row;
+            if (!extruded_) continue;
+            blend(row_[c], place_of(c));
+            fan_[c] = in_fan(c);
         }
     });
-    layered_.clear();
-    for (std::size_t c = 0; c < band_.size(); ++c)
-        if (row_[c].row == layered_row) {
-            layered_.emplace_back();
-            layered_.back().cell = static_cast<int>(c);
-            const Band::Cell& cell = band_.cells[c];
-            layered_.back().foot = foot_of(band_.domain.node(cell.i, cell.j, cell.k), band_.phi[c],
-                                           closest.foot[c], surface_.normal[element_[c]], h_);
-            layered_.back().phi0 = band_.phi[c];
-            layered_.back().resting = resting_sides(c);
-            layered_.back().place = place_of(c, closest);
-            find_wall(layered_.back());
+    const std::vector<int> cells =
+        indices_where(band_.size(), [&](std::size_t c) { return row_[c].row == layered_row; });
+    layered_.resize(cells.size());
+    for_ranges(cells.size(), [&](std::size_t begin, std::size_t end) {
+        for (std::size_t l = begin; l < end; ++l) {
+            const int c = cells[l];
+            LayeredCell& at = layered_[l] = {};
+            at.cell = c;
+            at.foot = foot(c);
+            at.phi0 = band_.phi[c];
+            at.resting = resting_sides(c);
+            at.place = place_of(c);
+            find_wall(at);
         }
+    });
+}
+
+/// Whether an interface or a grown film may lie between a cell and where its foot goes until the
+/// next refresh. If not, what lies below the foot lies below the centre of its element.
+bool Advance::meets_layers(std::size_t c) const {
+    const int e = element_[c];
+    const double z = (band_.cells[c].k + 0.5) * h_;
+    if (clear_[e] && std::fabs(z - plates_[e].centre.z) <= cell_reach * h_) return false;
+    const double z_foot = nearest(c).z;
+    const double middle = 0.5 * (z + z_foot), spread = 0.5 * std::fabs(z - z_foot);
+    return finder_.near(e, middle, foot_reach * h_ + spread);
 }
 
 /// Where on the surface, as it was when the rates were found, the foot of a cell lies.
-BetweenCentres Advance::place_of(std::size_t c, const ClosestElements& closest) const {
-    return between_centres(band_.domain, surface_, closest.element[c], closest.foot[c]);
+BetweenCentres Advance::place_of(std::size_t c) const {
+    return between_centres(band_.domain, surface_, element_[c], nearest(c));
 }
 
 /// Whether the nearest point of the surface is a corner that the cell sees from well beyond both
 /// sides.
-bool Advance::in_fan(std::size_t c, const ClosestElements& closest) const {
-    if (!extruded_) return false;
-    const Band::Cell& cell = band_.cells[c];
-    const Vec3& normal = surface_.normal[closest.element[c]];
-    const Foot foot = foot_of(band_.domain.node(cell.i, cell.j, cell.k), band_.phi[c],
-                              closest.foot[c], normal, h_);
-    return foot.corner && -foot.inward.dot(normal) < fan_cosine;
+bool Advance::in_fan(std::size_t c) const {
+    const Foot at = foot(c);
+    return at.corner && -at.inward.dot(surface_.normal[element_[c]]) < fan_cosine;
 }
 
 /// Takes in the row that the neighbour has for the same material.
@@ -139,8 +161,7 @@ unsigned Advance::resting_sides(std::size_t c) const {
 void Advance::find_wall(LayeredCell& at) const {
     const std::size_t c = at.cell;
     const int e = element_[c];
-    const Band::Cell& cell = band_.cells[c];
-    const Vec3 p = band_.domain.node(cell.i, cell.j, cell.k);
+    const Vec3 p = node(c);
     const auto apart = [this](Vec3 d) {
         if (band_.domain.sides == Sides::periodic) {
             const double wx = band_.domain.width_x(), wy = band_.domain.width_y();
@@ -153,9 +174,8 @@ void Advance::find_wall(LayeredCell& at) const {
         if (!(at.resting >> side & 1)) continue;
         const int w = element_[band_.neighbour[c][side]];
         const Vec3& n = surface_.normal[w];
-        const Vec3 wall = surface_.centre[w] - n * report_.moved[w];
-        const Vec3 front = surface_.centre[e] - surface_.normal[e] * report_.moved[e];
-        if (apart(wall - front).dot(surface_.normal[e]) <= 0) continue;
+        const Vec3& wall = plates_[w].centre;
+        if (apart(wall - plates_[e].centre).dot(surface_.normal[e]) <= 0) continue;
         const double distance = apart(p - wall).dot(n);
         if (distance >= at.wall) continue;
         at.wall = distance;
@@ -170,30 +190,35 @@ void Advance::classify_elements() {
     const double reach = (refresh_move + 2 * layer_reach) * h_;
     element_tilt_.resize(surface_.size());
     element_window_.resize(surface_.size());
-    element_rate_.assign(surface_.size(), 0.0);
+    element_rate_.resize(surface_.size());
+    clear_.resize(surface_.size());
     std::vector<char> layered(surface_.size());
     for_ranges(surface_.size(), [&](std::size_t begin, std::size_t end) {
         for (std::size_t e = begin; e < end; ++e) {
             const Vec3& n = surface_.normal[e];
-            const Vec3 p = surface_.centre[e] - n * report_.moved[e];
-            const int id = static_cast<int>(e);
             element_tilt_[e] = tilt_of(extruded_, n.x, n.y, n.z);
-            const int row = finder_.row_below(id, {p, -n, false});
+        }
+        // Rows of the tables come from far away; apart from the tilts, many are asked for at once.
+        for (std::size_t e = begin; e < end; ++e) {
+            const Plate& plate = plates_[e];
+            const int id = static_cast<int>(e);
+            const int row = finder_.row_below(id, {plate.centre, -plate.normal, false});
             element_rate_[e] = tables_.rate(row, element_tilt_[e].angle);
             element_window_[e] = tables_.window(row, element_tilt_[e].angle);
             // Growth starts a film, so such elements are layered too.
-            layered[e] = element_rate_[e] < 0 || finder_.near(id, p.z, reach);
+            layered[e] = element_rate_[e] < 0 || finder_.near(id, plate.centre.z, reach);
+            clear_[e] =
+                !finder_.near(id, plate.centre.z, (foot_reach + cell_reach) * h_ + plate.radius);
         }
     });
-    layered_elements_.clear();
-    for (std::size_t e = 0; e < layered.size(); ++e)
-        if (layered[e]) layered_elements_.push_back(static_cast<int>(e));
+    layered_elements_ =
+        indices_where(layered.size(), [&](std::size_t e) { return layered[e] != 0; });
     own_rate_ = element_rate_;
     for (const int e : layered_elements_)
         element_rate_[e] = 0;
 }
 
-void Advance::find_layers(LayeredCell& at, Speed& most) {
+Speed Advance::find_layers(LayeredCell& at) const {
     const std::size_t c = at.cell;
     const int e = element_[c];
     const double* phi = band_.phi.data();
@@ -217,6 +242,7 @@ void Advance::find_layers(LayeredCell& at, Speed& most) {
     }
     s = special_slopes(phi, at);
     finder_.for_cell(c, phi, length(), e, foot, layer_reach * h_, at.layers);
+    Speed most;
     for (int k = 0; k < at.layers.count; ++k) {
         Speed speed;
         blend(at.layers.row[k], at.place);
@@ -224,6 +250,7 @@ void Advance::find_layers(LayeredCell& at, Speed& most) {
         most.waves = std::max(most.waves, speed.waves);
         if (std::fabs(phi[c]) < h_) most.rate = std::max(most.rate, std::fabs(speed.rate));
     }
+    return most;
 }
 
 } // namespace rille::geometry

@@ -1,7 +1,10 @@
 // SPDX-License-Identifier: Apache-2.0
 #include "geometry/band_topology.hpp"
 
+#include "geometry/ranges.hpp"
+
 #include <algorithm>
+#include <numeric>
 
 namespace rille::geometry {
 
@@ -13,19 +16,22 @@ int fold_index(int i, int count, Sides sides) {
 }
 
 void ColumnIndex::build(const Band& band) {
-    const Domain& d = band.domain;
-    first_.assign(static_cast<std::size_t>(d.cells_x) * d.cells_y + 1, 0);
-    const auto column = [&](const Band::Cell& c) {
-        return c.i + static_cast<std::size_t>(d.cells_x) * c.j;
-    };
-    for (const Band::Cell& c : band.cells)
-        ++first_[column(c) + 1];
-    for (std::size_t c = 1; c < first_.size(); ++c)
-        first_[c] += first_[c - 1];
-    std::vector<int> at(first_.begin(), first_.end() - 1);
+    const int nx = band.domain.cells_x, ny = band.domain.cells_y;
+    const RowIndex rows(band);
+    first_.assign(static_cast<std::size_t>(nx) * ny + 1, 0);
     cell_.resize(band.size());
-    for (std::size_t c = 0; c < band.size(); ++c)
-        cell_[at[column(band.cells[c])]++] = static_cast<int>(c);
+    const auto over_cells = [&](const auto& visit) { // the columns of one j at a time
+        over_ranges(ny, 4, [&](std::size_t begin, std::size_t end) {
+            for (std::size_t row = 0; row < rows.rows(); row += ny)
+                for (std::size_t j = begin; j < end; ++j)
+                    for (int c = rows.first(row + j); c < rows.first(row + j + 1); ++c)
+                        visit(j * nx + band.cells[c].i, c);
+        });
+    };
+    over_cells([&](std::size_t column, int) { ++first_[column + 1]; });
+    std::partial_sum(first_.begin(), first_.end(), first_.begin());
+    std::vector<int> at(first_.begin(), first_.end() - 1);
+    over_cells([&](std::size_t column, int c) { cell_[at[column]++] = c; });
 }
 
 std::pair<const int*, const int*> ColumnIndex::column(const Band& band, int i, int j) const {
@@ -46,11 +52,20 @@ double ColumnIndex::phi(const Band& band, int i, int j, int k) const {
 RowIndex::RowIndex(const Band& band)
     : band_(band), ny_(band.domain.cells_y), k_low_(band.cells.front().k),
       k_high_(band.cells.back().k) {
-    first_.assign(static_cast<std::size_t>(k_high_ - k_low_ + 1) * ny_ + 1, 0);
-    for (const Band::Cell& c : band.cells)
-        ++first_[row(c.k, c.j) + 1];
-    for (std::size_t r = 1; r < first_.size(); ++r)
-        first_[r] += first_[r - 1];
+    const std::size_t rows = static_cast<std::size_t>(k_high_ - k_low_ + 1) * ny_;
+    first_.resize(rows + 1);
+    // Each cell that starts a row says so, for the empty rows before it as well.
+    for_ranges(band.size(), [&](std::size_t begin, std::size_t end) {
+        for (std::size_t c = begin; c < end; ++c) {
+            const std::size_t own = row(band.cells[c].k, band.cells[c].j);
+            std::size_t r = c == 0 ? 0 : row(band.cells[c - 1].k, band.cells[c - 1].j) + 1;
+            for (; r <= own; ++r)
+                first_[r] = static_cast<int>(c);
+        }
+    });
+    const Band::Cell& last = band.cells.back();
+    std::fill(first_.begin() + row(last.k, last.j) + 1, first_.end(),
+              static_cast<int>(band.size()));
 }
 
 int RowIndex::find(int i, int j, int k) const {

@@ -2,6 +2,7 @@
 #include "geometry/band_topology.hpp"
 
 #include "geometry/check.hpp"
+#include "geometry/ranges.hpp"
 
 #include <tbb/blocked_range.h>
 #include <tbb/parallel_for.h>
@@ -10,39 +11,33 @@
 
 #include <algorithm>
 #include <cmath>
-#include <limits>
-#include <tuple>
+#include <cstdint>
 
 namespace rille::geometry {
 
 namespace {
 
-constexpr std::size_t range_size = 4096;
 /// [cells] the eikonal value of a cell is at least its least neighbour's plus this: slope 1 shared
 /// by three axes, each with a weight of 1.5.
 constexpr double least_rise = 0.38;
-
-bool before(const Band::Cell& a, const Band::Cell& b) {
-    return std::tie(a.k, a.j, a.i) < std::tie(b.k, b.j, b.i);
-}
-
-bool same(const Band::Cell& a, const Band::Cell& b) {
-    return a.i == b.i && a.j == b.j && a.k == b.k;
-}
 
 bool has_gap(const std::array<int, 6>& next, bool flat) {
     return (next[0] | next[1] | next[4] | next[5]) < 0 || (!flat && (next[2] | next[3]) < 0);
 }
 
-/// For each cell of row `from`, the cell with the same i in row `to`, written to side `side`.
-void join_rows(Band& band, const RowIndex& rows, std::size_t from, std::size_t to, int side) {
-    int t = rows.first(to);
-    const int t_end = rows.first(to + 1);
-    for (int c = rows.first(from); c < rows.first(from + 1); ++c) {
-        const int i = band.cells[c].i;
-        while (t < t_end && band.cells[t].i < i)
-            ++t;
-        band.neighbour[c][side] = t < t_end && band.cells[t].i == i ? t : -1;
+/// Links the cells of two neighbouring rows that have the same i: those of `below` on side `up`,
+/// those of `above` on side `up` - 1.
+void join_rows(Band& band, const RowIndex& rows, std::size_t below, std::size_t above, int up) {
+    int b = rows.first(below), a = rows.first(above);
+    const int b_end = rows.first(below + 1), a_end = rows.first(above + 1);
+    while (b < b_end && a < a_end) {
+        const int apart = band.cells[b].i - band.cells[a].i;
+        if (apart == 0) {
+            band.neighbour[b][up] = a;
+            band.neighbour[a][up - 1] = b;
+        }
+        b += apart <= 0;
+        a += apart >= 0;
     }
 }
 
@@ -57,6 +52,12 @@ void connect_within_row(Band& band, int begin, int end) {
         if (i == 0) n[0] = mirror ? c : (band.cells[end - 1].i == nx - 1 ? end - 1 : -1);
         if (i == nx - 1) n[1] = mirror ? c : (band.cells[begin].i == 0 ? begin : -1);
     }
+}
+
+/// Makes each cell its own neighbour.
+void mirror_row(Band& band, int begin, int end, int side) {
+    for (int c = begin; c < end; ++c)
+        band.neighbour[c][side] = c;
 }
 
 /// One axis of the upwind eikonal equation: slope along it = weight (u - at) / h.
@@ -135,15 +136,28 @@ bool within_steps(const Band& band, const std::vector<char>& beside, int c, int 
     return false;
 }
 
-/// A cell to add, with the sign of the cell it touches; in the order of the band.
-struct Fresh {
-    Band::Cell cell;
-    double sign;
+/// A cell to add as one number: its place in the order of the band, then the side of the contour of
+/// the cell it touches.
+using Fresh = std::uint64_t;
+
+/// Cells as numbers that rise in the order of the band, and back.
+class Order {
+public:
+    explicit Order(const Band& band)
+        : nx_(band.domain.cells_x), ny_(band.domain.cells_y), k_low_(band.cells.front().k - 1) {}
+    Fresh fresh(const Band::Cell& c, bool gas) const {
+        return ((static_cast<Fresh>(c.k - k_low_) * ny_ + c.j) * nx_ + c.i) << 1 | gas;
+    }
+    Band::Cell cell(Fresh f) const {
+        const Fresh row = (f >> 1) / nx_;
+        return {static_cast<int>((f >> 1) % nx_), static_cast<int>(row % ny_),
+                static_cast<int>(row / ny_) + k_low_};
+    }
+
+private:
+    Fresh nx_, ny_;
+    int k_low_;
 };
-bool operator<(const Fresh& a, const Fresh& b) {
-    return std::tie(a.cell.k, a.cell.j, a.cell.i, a.sign) <
-           std::tie(b.cell.k, b.cell.j, b.cell.i, b.sign);
-}
 
 /// Missing neighbours of those of the cells from(0) to from(count - 1) that are within `reach` or
 /// one step from the contour.
@@ -154,9 +168,10 @@ std::vector<Fresh> missing_cells(const Band& band, const std::vector<char>& besi
                                        {0, 1, 0},  {0, 0, -1}, {0, 0, 1}};
     const Domain& d = band.domain;
     const bool flat = d.extruded();
-    std::vector<std::vector<Fresh>> parts(count / range_size + 1);
+    const Order order(band);
+    std::vector<std::vector<Fresh>> parts(range_of(count) + 1);
     for_ranges(count, [&](std::size_t begin, std::size_t end) {
-        std::vector<Fresh>& out = parts[begin / range_size];
+        std::vector<Fresh>& out = parts[range_of(begin)];
         for (std::size_t at = begin; at < end; ++at) {
             const int c = from(at);
             const auto& next = band.neighbour[c];
@@ -165,10 +180,10 @@ std::vector<Fresh> missing_cells(const Band& band, const std::vector<char>& besi
             for (int side = 0; side < 6; ++side) {
                 if (next[side] >= 0 || (flat && (side == 2 || side == 3))) continue;
                 const Band::Cell& cell = band.cells[c];
-                out.push_back({{fold_index(cell.i + step[side][0], d.cells_x, d.sides),
-                                fold_index(cell.j + step[side][1], d.cells_y, d.sides),
-                                cell.k + step[side][2]},
-                               band.phi[c] < 0 ? -1.0 : 1.0});
+                out.push_back(order.fresh({fold_index(cell.i + step[side][0], d.cells_x, d.sides),
+                                           fold_index(cell.j + step[side][1], d.cells_y, d.sides),
+                                           cell.k + step[side][2]},
+                                          band.phi[c] >= 0));
             }
         }
     });
@@ -176,40 +191,58 @@ std::vector<Fresh> missing_cells(const Band& band, const std::vector<char>& besi
     for (const std::vector<Fresh>& part : parts)
         all.insert(all.end(), part.begin(), part.end());
     tbb::parallel_sort(all.begin(), all.end());
-    all.erase(std::unique(all.begin(), all.end(),
-                          [](const Fresh& a, const Fresh& b) { return same(a.cell, b.cell); }),
-              all.end());
+    all.erase(
+        std::unique(all.begin(), all.end(), [](Fresh a, Fresh b) { return a >> 1 == b >> 1; }),
+        all.end());
     return all;
 }
 
-/// Puts cells in where they belong, with phi = sign times `unknown`; returns where they are.
+/// Puts cells in where they belong, with phi = `unknown` on their side; returns where they are.
 std::vector<int> insert(Band& band, std::vector<char>& beside, const std::vector<Fresh>& fresh,
                         double unknown) {
-    std::size_t old = band.size(), f = fresh.size(), to = old + f;
-    std::vector<int> added(f);
-    band.cells.resize(to);
-    band.phi.resize(to);
-    beside.resize(to);
-    while (f > 0) { // from behind, so that it can be done in place
-        --to;
-        if (old > 0 && before(fresh[f - 1].cell, band.cells[old - 1])) {
-            --old;
-            band.cells[to] = band.cells[old];
-            band.phi[to] = band.phi[old];
-            beside[to] = beside[old];
-        } else {
-            --f;
-            band.cells[to] = fresh[f].cell;
-            band.phi[to] = fresh[f].sign * unknown;
-            beside[to] = 0;
-            added[f] = static_cast<int>(to);
+    const std::size_t old = band.size(), size = old + fresh.size();
+    const Order order(band);
+    std::vector<Band::Cell> cells(size);
+    std::vector<double> phi(size);
+    std::vector<char> marks(size, 0);
+    std::vector<int> added(fresh.size());
+    const auto first_after = [&](std::size_t c) {
+        return std::lower_bound(fresh.begin(), fresh.end(), order.fresh(band.cells[c], false)) -
+               fresh.begin();
+    };
+    for_ranges(old, [&](std::size_t begin, std::size_t end) {
+        std::size_t f = begin == 0 ? 0 : first_after(begin);
+        const std::size_t f_end = end == old ? fresh.size() : first_after(end);
+        for (std::size_t c = begin, to = begin + f; c < end || f < f_end; ++to) {
+            if (f < f_end && (c == end || fresh[f] < order.fresh(band.cells[c], false))) {
+                cells[to] = order.cell(fresh[f]);
+                phi[to] = fresh[f] & 1 ? unknown : -unknown;
+                added[f++] = static_cast<int>(to);
+            } else {
+                cells[to] = band.cells[c];
+                phi[to] = band.phi[c];
+                marks[to] = beside[c++];
+            }
         }
-    }
+    });
+    band.cells.swap(cells);
+    band.phi.swap(phi);
+    beside.swap(marks);
     connect(band);
     if (band.domain.extruded()) return added;
-    for (const int c : added)
+    const auto other_side = [&](int c, int n) {
+        return n >= 0 && (band.phi[n] < 0) != (band.phi[c] < 0);
+    };
+    for (const int a : indices_where(added.size(), [&](std::size_t at) {
+             const auto& next = band.neighbour[added[at]];
+             return std::any_of(next.begin(), next.end(),
+                                [&](int n) { return other_side(added[at], n); });
+         })) {
+        const int c = added[a];
+        beside[c] = 1;
         for (const int n : band.neighbour[c])
-            if (n >= 0 && (band.phi[n] < 0) != (band.phi[c] < 0)) beside[c] = beside[n] = 1;
+            if (other_side(c, n)) beside[n] = 1;
+    }
     return added;
 }
 
@@ -231,14 +264,18 @@ void solve(Band& band, const std::vector<int>& added, double unknown) {
                 value[a] = round == 0 || hears_news(added[a]) ? eikonal(band, added[a], unknown)
                                                               : std::fabs(band.phi[added[a]]);
         });
-        bool settled = true;
-        for (std::size_t a = 0; a < added.size(); ++a) {
-            double& phi = band.phi[added[a]];
-            news[added[a]] = std::fabs(phi) != value[a];
-            settled = settled && !news[added[a]];
-            phi = std::copysign(value[a], phi);
-        }
-        if (settled) break;
+        const double changed =
+            largest_of_ranges(added.size(), [&](std::size_t begin, std::size_t end) {
+                bool any = false;
+                for (std::size_t a = begin; a < end; ++a) {
+                    double& phi = band.phi[added[a]];
+                    news[added[a]] = std::fabs(phi) != value[a];
+                    any = any || news[added[a]];
+                    phi = std::copysign(value[a], phi);
+                }
+                return any ? 1.0 : 0.0;
+            });
+        if (changed == 0) break;
     }
 }
 
@@ -272,32 +309,28 @@ void connect(Band& band) {
     const Domain& d = band.domain;
     const int ny = d.cells_y;
     band.neighbour.resize(band.size());
-    const auto joined = [&](std::size_t begin, std::size_t end) {
-        for (std::size_t r = begin; r < end; ++r) {
-            const int k = rows.k_low() + static_cast<int>(r / ny);
-            const int j = static_cast<int>(r % ny);
-            const int first = rows.first(r), last = rows.first(r + 1);
-            if (first == last) continue;
-            connect_within_row(band, first, last);
-            for (int up = 0; up < 2; ++up) {
-                const int side_y = 2 + up, side_z = 4 + up, to_j = up ? j + 1 : j - 1;
-                const int to_k = up ? k + 1 : k - 1;
-                if (d.extruded())
-                    for (int c = first; c < last; ++c)
-                        band.neighbour[c][side_y] = -1;
-                else
-                    join_rows(band, rows, r, rows.row(k, fold_index(to_j, ny, d.sides)), side_y);
-                if (to_k >= rows.k_low() && to_k <= rows.k_high())
-                    join_rows(band, rows, r, rows.row(to_k, j), side_z);
-                else
-                    for (int c = first; c < last; ++c)
-                        band.neighbour[c][side_z] = -1;
-            }
-        }
+    const auto over_rows = [&](const auto& body) {
+        over_ranges(rows.rows(), 64, [&](std::size_t begin, std::size_t end) {
+            for (std::size_t row = begin; row < end; ++row)
+                body(row);
+        });
     };
-    tbb::parallel_for(
-        tbb::blocked_range<std::size_t>(0, rows.rows(), 64),
-        [&](const tbb::blocked_range<std::size_t>& r) { joined(r.begin(), r.end()); });
+    over_rows([&](std::size_t row) {
+        for (int c = rows.first(row); c < rows.first(row + 1); ++c)
+            band.neighbour[c].fill(-1);
+        connect_within_row(band, rows.first(row), rows.first(row + 1));
+    });
+    over_rows([&](std::size_t row) { // each links itself to the rows after it
+        const int j = static_cast<int>(row % ny);
+        if (row + ny < rows.rows()) join_rows(band, rows, row, row + ny, 5);
+        if (d.extruded()) return;
+        if (j + 1 < ny) return join_rows(band, rows, row, row + 1, 3);
+        if (d.sides == Sides::periodic) return join_rows(band, rows, row, row - j, 3);
+        mirror_row(band, rows.first(row), rows.first(row + 1), 3);
+    });
+    if (d.extruded() || d.sides == Sides::periodic) return;
+    for (std::size_t row = 0; row < rows.rows(); row += ny)
+        mirror_row(band, rows.first(row), rows.first(row + 1), 2);
 }
 
 void retopologise(Band& band, int layers) {
@@ -317,21 +350,21 @@ void retopologise(Band& band, int layers) {
         added = insert(band, beside, fresh, unknown);
         solve(band, added, unknown);
     }
-    std::vector<char> drop(band.size());
-    for_ranges(band.size(), [&](std::size_t begin, std::size_t end) {
-        for (std::size_t c = begin; c < end; ++c)
-            drop[c] = std::fabs(band.phi[c]) > reach &&
-                      !within_steps(band, beside, static_cast<int>(c), 2);
+    const std::vector<int> kept = indices_where(band.size(), [&](std::size_t c) {
+        return !(std::fabs(band.phi[c]) > reach) ||
+               within_steps(band, beside, static_cast<int>(c), 2);
     });
-    std::size_t kept = 0;
-    for (std::size_t c = 0; c < band.size(); ++c) {
-        if (drop[c]) continue;
-        band.cells[kept] = band.cells[c];
-        band.phi[kept++] = band.phi[c];
-    }
-    if (kept == band.size()) return;
-    band.cells.resize(kept);
-    band.phi.resize(kept);
+    if (kept.size() == band.size()) return;
+    std::vector<Band::Cell> cells(kept.size());
+    std::vector<double> phi(kept.size());
+    for_ranges(kept.size(), [&](std::size_t begin, std::size_t end) {
+        for (std::size_t at = begin; at < end; ++at) {
+            cells[at] = band.cells[kept[at]];
+            phi[at] = band.phi[kept[at]];
+        }
+    });
+    band.cells.swap(cells);
+    band.phi.swap(phi);
     connect(band);
 }
 

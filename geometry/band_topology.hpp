@@ -16,9 +16,28 @@ constexpr double band_half_width = 3.0;
 /// Calls body(begin, end) for consecutive ranges of [0, n), in parallel. The ranges depend on n
 /// alone; bodies must write disjoint outputs only, so results do not depend on the thread count.
 void for_ranges(std::size_t n, const std::function<void(std::size_t, std::size_t)>& body);
+constexpr std::size_t range_size = 4096;
+/// Which of these ranges holds an index.
+constexpr std::size_t range_of(std::size_t index) {
+    return index / range_size;
+}
 /// Largest of body(begin, end) over the same ranges (exact for any thread count), at least 0.
 double largest_of_ranges(std::size_t n,
                          const std::function<double(std::size_t, std::size_t)>& body);
+
+/// Indices of [0, n) for which wanted(index) holds, in ascending order; asked in parallel.
+template <class Wanted>
+std::vector<int> indices_where(std::size_t n, const Wanted& wanted) {
+    std::vector<std::vector<int>> parts(range_of(n) + 1);
+    for_ranges(n, [&](std::size_t begin, std::size_t end) {
+        for (std::size_t at = begin; at < end; ++at)
+            if (wanted(at)) parts[range_of(begin)].push_back(static_cast<int>(at));
+    });
+    std::vector<int> all;
+    for (const std::vector<int>& part : parts)
+        all.insert(all.end(), part.begin(), part.end());
+    return all;
+}
 
 /// Reads phi by indices: per column (i, j) the numbers of its cells by rising k. Every
 /// column crosses the front, so the nearest cell of a column also tells the sign beyond the band.

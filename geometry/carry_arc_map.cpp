@@ -84,9 +84,10 @@ Vec3 ArcMap::displacement(int a, int b) const {
 /// length walked.
 template <class Visit>
 double ArcMap::walk(int e, bool back, double length, const Visit& visit) const {
-    double done = 0;
+    double done = 0, side = 1;
     Vec3 normal = from_.normal[e];
-    for (double side = 1; done < length;) {
+    // There and back at most: a piece of no length would go round for ever.
+    for (std::size_t seen = 0; done < length && seen < 2 * from_.size(); ++seen) {
         const double part = std::min(from_.area[e], length - done);
         visit(normal, part);
         done += part;

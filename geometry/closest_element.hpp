@@ -8,15 +8,20 @@
 
 namespace rille::geometry {
 
-/// For every cell of the band the nearest element of a surface and the nearest point on it.
-struct ClosestElements {
-    std::vector<int> element; ///< -1 where no element lies within reach
-    std::vector<Vec3> foot;   ///< [nm]; may lie beyond a periodic side, next to its cell
+/// An element where it has moved to, side by side in memory: elements are asked for in no order.
+struct alignas(64) Plate {
+    Vec3 centre, normal; ///< [nm]; unit
+    double radius;       ///< [nm] of the disc that stands for a quad; half a segment's length
 };
 
-/// Nearest point to p on element e [nm]: exact for segments; quads count as the disc of equal area
-/// around their centre in their plane, which is what choosing between neighbours needs.
-Vec3 nearest_point(const Surface&, bool extruded, int e, const Vec3& p);
+/// Nearest point of an element to p [nm], next to p in a periodic domain.
+Vec3 nearest_point(const Domain&, const Plate&, const Vec3& p);
+
+/// For every cell of a band the nearest element of a surface.
+struct ClosestElements {
+    std::vector<Plate> plates;
+    std::vector<int> element; ///< -1 where no element lies within reach
+};
 
 /// Nearest point to p on element e, exact for segments, triangles and planar quads.
 Vec3 exact_nearest_point(const Surface&, bool extruded, int e, const Vec3& p);

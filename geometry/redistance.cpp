@@ -39,19 +39,16 @@ double crossing_shift(double a, double b, double new_a, double new_b) {
 
 double redistance(Band& band, const Surface& surface, const ClosestElements& closest) {
     const double h = band.domain.spacing;
-    std::vector<char> flag(band.size(), 0);
-    for_ranges(band.size(), [&](std::size_t begin, std::size_t end) {
-        for (std::size_t c = begin; c < end; ++c)
-            flag[c] = std::fabs(band.phi[c]) < redistance_reach * h && closest.element[c] >= 0 &&
-                      steepness_off(band, c);
+    const std::vector<int> changed = indices_where(band.size(), [&](std::size_t c) {
+        return std::fabs(band.phi[c]) < redistance_reach * h && closest.element[c] >= 0 &&
+               steepness_off(band, c);
     });
-    std::vector<int> changed;
-    for (std::size_t c = 0; c < band.size(); ++c)
-        if (flag[c]) changed.push_back(static_cast<int>(c));
     if (changed.empty()) return 0;
 
     const std::vector<double> old = band.phi;
+    std::vector<char> flag(band.size(), 0);
     for (const int c : changed) {
+        flag[c] = 1;
         const Band::Cell& cell = band.cells[c];
         const Vec3 p = band.domain.node(cell.i, cell.j, cell.k);
         // The foot is next to the cell; the element may lie on the other side of the period.

@@ -7,6 +7,7 @@
 #include <algorithm>
 #include <cmath>
 #include <cstddef>
+#include <limits>
 
 namespace rille::geometry {
 
@@ -42,9 +43,12 @@ enum class Limiter {
 };
 
 inline double limited_bend(double near, double far, Limiter limiter) {
-    if (near * far <= 0) return 0;
-    if (limiter == Limiter::directional)
-        return near * far * (near + far) / (near * near + far * far);
+    const double product = near * far;
+    if (limiter == Limiter::directional) { // without a branch: signs are hard to guess
+        constexpr double not_zero = std::numeric_limits<double>::min();
+        return std::max(product, 0.0) * (near + far) / (near * near + far * far + not_zero);
+    }
+    if (product <= 0) return 0;
     const double third = (2 * near + far) * (1.0 / 3);
     const double most = 2 * std::min(std::fabs(near), std::fabs(far));
     return std::fabs(third) <= most ? third : std::copysign(most, near);
