@@ -41,21 +41,14 @@ double Advance::change(const Slopes& s, const RowPair& row, const RateWindow& wi
 }
 
 /// Calls take(cell, dphi/dt, speed) for the cells of a range that move, but for layered ones.
-/// first: the stage that finds the dissipation of each.
 template <class Take>
-void Advance::sweep(const double* phi, bool first, std::size_t begin, std::size_t end,
-                    const Take& take) {
+void Advance::sweep(const double* phi, std::size_t begin, std::size_t end, const Take& take) const {
     std::array<FluxCell, 32> cells;
     std::size_t count = 0;
     const auto finish = [&] {
-        if (first)
-            lax_friedrichs(tables_, extruded_, cells.data(), static_cast<int>(count));
-        else
-            lax_friedrichs_as_before(tables_, extruded_, cells.data(), static_cast<int>(count));
-        for (std::size_t n = 0; n < count; ++n) {
-            if (first) dissipation_[cells[n].cell] = cells[n].dissipation;
+        lax_friedrichs(tables_, extruded_, cells.data(), static_cast<int>(count));
+        for (std::size_t n = 0; n < count; ++n)
             take(cells[n].cell, cells[n].change, cells[n].speed);
-        }
         count = 0;
     };
     for (std::size_t c = begin; c < end; ++c) {
@@ -76,7 +69,6 @@ void Advance::sweep(const double* phi, bool first, std::size_t begin, std::size_
         next.rows = &row;
         next.window = &window;
         next.slopes = slopes(phi, c, 0, true);
-        if (!first) next.dissipation = dissipation_[c];
         if (count == cells.size()) finish();
     }
     finish();
@@ -133,7 +125,7 @@ Speed Advance::first_stage() {
         const double ease = limits_.max_share / std::min(2 * limits_.max_share, smooth_share);
         double waves = 0, fastest = 0;
         std::fill(slope_.begin() + begin, slope_.begin() + end, 0.0);
-        sweep(phi, true, begin, end, [&](std::size_t c, double change, const Speed& speed) {
+        sweep(phi, begin, end, [&](std::size_t c, double change, const Speed& speed) {
             slope_[c] = change;
             waves = std::max(waves, speed.smooth ? ease * speed.waves : speed.waves);
             if (std::fabs(phi[c]) < h_) fastest = std::max(fastest, std::fabs(speed.rate));
@@ -172,7 +164,7 @@ void Advance::step(double dt) {
     });
     const double* next = next_.data();
     for_ranges(band_.size(), [&](std::size_t begin, std::size_t end) {
-        sweep(next, false, begin, end, [&](std::size_t c, double second, const Speed&) {
+        sweep(next, begin, end, [&](std::size_t c, double second, const Speed&) {
             band_.phi[c] += 0.5 * dt * (slope_[c] + second);
         });
     });

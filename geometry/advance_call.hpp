@@ -76,7 +76,7 @@ private:
     double change(const Slopes&, const RowPair&, const RateWindow&, bool fan, Speed&) const;
     void blend(RowPair&, const BetweenCentres&) const;
     template <class Take>
-    void sweep(const double* phi, bool first, std::size_t begin, std::size_t end, const Take& take);
+    void sweep(const double* phi, std::size_t begin, std::size_t end, const Take& take) const;
     template <class Body>
     void over_layered(const Body& body);
     double layered_change(const Slopes&, const Layers&, bool fan, double dt) const;
@@ -107,7 +107,6 @@ private:
     /// extruded: whether the nearest point is a sharp corner; full: see find_even_cells.
     std::vector<char> fan_;
     std::vector<double> slope_, next_; ///< dphi/dt at the first stage; phi after it
-    std::vector<Dissipation> dissipation_;
     std::vector<LayeredCell> layered_;
     std::vector<int> layered_elements_;
     std::vector<Tilt> element_tilt_;

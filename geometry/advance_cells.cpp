@@ -36,7 +36,6 @@ void Advance::refresh() {
     find_even_cells();
     slope_.resize(band_.size());
     next_.resize(band_.size());
-    dissipation_.resize(band_.size());
     moved_since_refresh_ = 0;
     time_of_refresh_ = report_.time;
 }

@@ -325,19 +325,7 @@ double lax_friedrichs(const RateTables& tables, const RowPair& rows, const RateW
     return cell.change;
 }
 
-namespace {
-
-void add_dissipation(FluxCell* cells, int count) {
-    for (int n = 0; n < count; ++n) {
-        FluxCell& c = cells[n];
-        c.change = c.speed.rate * c.length;
-        for (int axis = 0; axis < 3; ++axis)
-            c.change += 0.5 * c.dissipation[axis] * (c.slopes.plus[axis] - c.slopes.minus[axis]);
-    }
-}
-
-/// Mean slopes as tilts, and the rate there.
-void find_rates(const RateTables& tables, bool extruded, FluxCell* cells, int count) {
+void lax_friedrichs(const RateTables& tables, bool extruded, FluxCell* cells, int count) {
     for (int n = 0; n < count; ++n) {
         FluxCell& c = cells[n];
         const double gx = c.slopes.mean(0), gy = c.slopes.mean(1);
@@ -346,29 +334,18 @@ void find_rates(const RateTables& tables, bool extruded, FluxCell* cells, int co
     }
     for (int n = 0; n < count; ++n)
         tables.find_segment(cells[n].mean);
-    for (int n = 0; n < count; ++n)
-        cells[n].speed.rate = tables.rate(*cells[n].rows, cells[n].mean, *cells[n].window);
-}
-
-} // namespace
-
-void lax_friedrichs(const RateTables& tables, bool extruded, FluxCell* cells, int count) {
-    find_rates(tables, extruded, cells, count);
     for (int n = 0; n < count; ++n) {
         FluxCell& c = cells[n];
+        const Slopes& s = c.slopes;
+        c.speed.rate = tables.rate(*c.rows, c.mean, *c.window);
         const std::array<double, 3> a =
-            dissipation(tables, *c.rows, *c.window, extruded, c.slopes, c.mean);
+            dissipation(tables, *c.rows, *c.window, extruded, s, c.mean);
         c.speed.waves = a[0] + a[1] + a[2];
-        c.speed.smooth = smooth(c.slopes);
+        c.speed.smooth = smooth(s);
+        c.change = c.speed.rate * c.length;
         for (int axis = 0; axis < 3; ++axis)
-            c.dissipation[axis] = static_cast<float>(a[axis]);
+            c.change += 0.5 * a[axis] * (s.plus[axis] - s.minus[axis]);
     }
-    add_dissipation(cells, count);
-}
-
-void lax_friedrichs_as_before(const RateTables& tables, bool extruded, FluxCell* cells, int count) {
-    find_rates(tables, extruded, cells, count);
-    add_dissipation(cells, count);
 }
 
 } // namespace rille::geometry

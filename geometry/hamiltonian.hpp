@@ -129,9 +129,6 @@ struct Speed {
 double lax_friedrichs(const RateTables&, const RowPair&, const RateWindow&, bool extruded,
                       const Slopes&, Speed&);
 
-/// Largest |dH/dp| along x, y and z over the box of slopes of a cell [nm/s].
-using Dissipation = std::array<float, 3>;
-
 /// A cell with what `lax_friedrichs` is given and what it returns.
 struct FluxCell {
     std::size_t cell = 0;
@@ -141,14 +138,10 @@ struct FluxCell {
     Tilt mean;         ///< of the mean slopes, found on the way
     double length = 0; ///< of the mean slopes
     Speed speed;
-    Dissipation dissipation;
     double change = 0; ///< dphi/dt [nm/s]
 };
 /// The same for several cells, step by step: one cell is a long chain of operations that wait for
 /// each other, and the chains of several run side by side.
 void lax_friedrichs(const RateTables&, bool extruded, FluxCell* cells, int count);
-/// With the dissipation that each cell comes with: at the second stage of a step the one of the
-/// first will do. Tells no speed of waves.
-void lax_friedrichs_as_before(const RateTables&, bool extruded, FluxCell* cells, int count);
 
 } // namespace rille::geometry
