@@ -19,7 +19,8 @@ cp -r "$work/done" "$work/killed"
 (cd "$work/killed" && rm run.json metrics.json history.csv profile.* report.html)
 cp -r "$work/done" "$work/kept"
 (cd "$work/kept" && rm -r frames front.pvd report.html)
-"$rille" report "$work/killed" "$work/kept" --quiet
+"$rille" report "$work/killed" --quiet
+"$rille" report "$work/kept" --quiet
 sed -e 's/spacing: 4 nm/spacing: 12 nm/' -e 's/until: {reaches: stop, at: hole centre}, no_longer_than: 120 s/time: 1 s/' \
     "$root/examples/contact-via/case.yaml" >"$work/hole.yaml"
 "$rille" run "$work/hole.yaml" --set sampling.ions_per_species=256 --set sampling.rays_per_point=16 \

@@ -130,7 +130,7 @@ TEST_CASE("collisions count when pressure and gas are given", "[plasma]") {
     const auto thin = figures_of(arrivals(low).ions[0].ions[0]);
     const auto thick = figures_of(arrivals(high).ions[0].ions[0]);
     CHECK(thick.mean_ev < 0.9 * thin.mean_ev);
-    CHECK(arrivals(low).ions[0].fast_neutrals.empty());
+    CHECK(arrivals(low).ions[0].fast_neutral_flux < 0.1 * arrivals(low).ions[0].flux);
     REQUIRE(arrivals(high).ions[0].fast_neutrals.size() == 1);
     CHECK(arrivals(high).ions[0].fast_neutral_flux > 0.1 * arrivals(high).ions[0].flux);
     const Case ignored = case_with(argon + std::string("rf_bias: {mean_sheath: 200 V}, sheath: "
