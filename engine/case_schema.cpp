@@ -137,7 +137,7 @@ Rule measured_rule() {
 }
 
 std::vector<Rule> later_rules() {
-    const char* study = "studies over several runs come later; run one case, with --set for values";
+    const char* study = "belongs into a study file, which names this case as its base: rille study";
     std::vector<Rule> rules = {
         later_rule("accuracy", "the spacing is not chosen for you; give spacing"),
         later_rule("layout", "mask layouts are not read; write mask.openings"),
@@ -145,7 +145,7 @@ std::vector<Rule> later_rules() {
         later_rule("contour", "runs start from the fresh stack; leave it out"),
         later_rule("fit", "parameters are not fitted; leave it out")};
     for (const char* key : {"base", "vary", "compare", "plan", "linked", "answer", "keep", "slurm"})
-        rules.push_back(later_rule(key, study));
+        rules.push_back(refused_rule(key, study));
     return rules;
 }
 

@@ -6,6 +6,7 @@
 #include "engine/report/study_page.hpp"
 #include "engine/study/results.hpp"
 #include "engine/study/study_effects.hpp"
+#include "engine/study/study_measured.hpp"
 #include "engine/study/study_names.hpp"
 
 #include <filesystem>
@@ -74,6 +75,7 @@ bool all_targets_met(const std::string& folder) {
 
 void write_study_pages(const std::string& folder, const Study& study) {
     write_study_effects(folder, study);
+    write_measured(folder, study);
     OutputFolder out(folder, OutputFolder::Existing::keep);
     write_study_report(out);
 }

@@ -17,8 +17,8 @@ struct MeasuredRow {
     std::optional<double> sites;
 };
 
-/// The rows of the study's comparison, joined to its points by values within its tolerance. A row
-/// that no point fits is left out and counted in `unmatched`.
+/// The measured rows that measured.csv lays beside points with a row in the table, and how many
+/// meet no point of the plan.
 struct MeasuredRows {
     std::vector<MeasuredRow> rows;
     std::size_t unmatched = 0;

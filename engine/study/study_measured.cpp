@@ -1,6 +1,10 @@
 // SPDX-License-Identifier: Apache-2.0
 #include "engine/study/study_measured.hpp"
 
+#include "engine/number_text.hpp"
+#include "engine/output_folder.hpp"
+#include "engine/study/study_effects.hpp"
+#include "engine/study/study_names.hpp"
 #include "engine/study/study_plan.hpp"
 #include "engine/words.hpp"
 
@@ -9,6 +13,8 @@
 #include <algorithm>
 #include <cmath>
 #include <filesystem>
+#include <functional>
+#include <map>
 
 namespace rille::engine {
 
@@ -125,6 +131,40 @@ MeasuredJoin join_measured(const Study& study) {
                                                    described(study, keys[r])));
     }
     return result;
+}
+
+std::string measured_csv(const Study& study, const StudyTable& table) {
+    const MeasuredJoin join = join_measured(study);
+    const auto y = answer_columns(table, study).y;
+    const auto error = y ? table.error_of(*y) : std::nullopt;
+    const auto name = table.find(StudyTableColumn::Role::point);
+    std::map<std::string, std::size_t, std::less<>> row_of;
+    for (std::size_t row = 0; name && row < table.rows(); ++row)
+        row_of.emplace(table.text(row, *name), row);
+    const auto cell = [](const std::optional<double>& value) {
+        return value ? shortest(*value) : std::string();
+    };
+    std::string text = "# " + study.title + "\n# difference: predicted less measured\n";
+    for (const std::string& none : join.unmatched)
+        text += "# unmatched = " + none + "\n";
+    text += "line,point,measured,sigma,sites,predicted,predicted_error,difference\n";
+    for (const MeasuredPoint& row : join.rows) {
+        const std::string point = point_name(study, row.point);
+        const auto at = row_of.find(point);
+        const bool known = y && at != row_of.end();
+        const auto predicted = known ? table.number(at->second, *y) : std::nullopt;
+        text += fmt::format("{},{},{},{},{},{},{},{}\n", row.line, point, shortest(row.value),
+                            cell(row.sigma), cell(row.sites), cell(predicted),
+                            known && error ? cell(table.number(at->second, *error)) : "",
+                            predicted ? shortest(*predicted - row.value) : "");
+    }
+    return text;
+}
+
+void write_measured(const std::string& folder, const Study& study) {
+    if (!study.comparison) return;
+    OutputFolder(folder, OutputFolder::Existing::keep)
+        .write(study_names::measured, measured_csv(study, read_study_table(folder)));
 }
 
 } // namespace rille::engine

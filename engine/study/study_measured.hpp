@@ -1,7 +1,7 @@
 // SPDX-License-Identifier: Apache-2.0
 #pragma once
 
-#include "engine/study/study.hpp"
+#include "engine/study/results.hpp"
 
 #include <optional>
 #include <string>
@@ -26,5 +26,11 @@ struct MeasuredJoin {
 /// letters, numbers within its relative tolerance. A row may meet several points (repeats). Empty
 /// without a comparison. Throws InputError for a table that has changed since the study was read.
 MeasuredJoin join_measured(const Study&);
+
+/// A row for each measured row and point that it meets, with what the table predicts there; rows
+/// that meet no point as `# unmatched` lines. Values are taken to be in the unit of the answer.
+std::string measured_csv(const Study&, const StudyTable&);
+/// Writes DIR/measured.csv by DIR/results.csv; nothing without a comparison. Throws OutputError.
+void write_measured(const std::string& folder, const Study&);
 
 } // namespace rille::engine

@@ -14,12 +14,13 @@ inline constexpr const char* point_record = "point.json";   ///< in the folder o
 inline constexpr const char* results = "results.csv";       ///< one row a point
 inline constexpr const char* effects_json = "effects.json"; ///< main effects, sensitivities, fits
 inline constexpr const char* effects_csv = "effects.csv";
+inline constexpr const char* measured = "measured.csv"; ///< measured rows beside their points
 inline constexpr const char* answer_svg = "answer.svg"; ///< the curve that was asked for
 inline constexpr const char* answer_png = "answer.png";
 inline constexpr const char* report = "report.html";
 inline constexpr const char* slurm = "slurm"; ///< folder of job scripts, logs and job numbers
-inline constexpr const char* all_files[] = {study,       manifest,   results,    effects_json,
-                                            effects_csv, answer_svg, answer_png, report};
+inline constexpr const char* all_files[] = {
+    study, manifest, results, effects_json, effects_csv, measured, answer_svg, answer_png, report};
 inline constexpr const char* all_folders[] = {base, inputs, points, slurm};
 
 /// How a point ended.

@@ -135,19 +135,20 @@ TEST_CASE("study page: measured rows lie beside their points") {
     const TemporaryFolder folder;
     const StudySample sample;
     write_study(folder.path, sample);
-    std::filesystem::create_directories(folder.path + "/inputs");
-    std::ofstream(folder.path + "/inputs/cd.csv")
-        << "amplitude [kV],cd [nm],mean_nm,sigma_nm,n\n0.3,60,3.2,0.4,9\n0.6,60,4.4,0.5,9\n"
-           "0.35,60,9,1,9\n";
+    const std::string point(read_study_view(folder.path).point(18));
+    std::ofstream(folder.path + "/measured.csv")
+        << "# unmatched = cd.csv:4: no point with amplitude 350 V\n"
+           "line,point,measured,sigma,sites,predicted,predicted_error,difference\n2,"
+        << point << ",3.2,0.4,9,3.1,0.01,-0.1\n3,0001,4.4,,,4.3,0.01,-0.1\n";
     nlohmann::json manifest = nlohmann::json::parse(read_file(folder.path + "/study.json"));
-    manifest["comparison"] = {{"file", "inputs/cd.csv"}, {"join", {0, 1}}, {"value", "mean_nm"},
-                              {"sigma", "sigma_nm"},     {"sites", "n"},   {"tolerance", 1e-6}};
+    manifest["comparison"] = {{"file", "inputs/cd.csv"}};
     std::ofstream(folder.path + "/study.json") << manifest.dump();
     const MeasuredRows rows = measured_rows(read_study_view(folder.path));
     REQUIRE(rows.rows.size() == 2);
     CHECK(rows.unmatched == 1);
     CHECK(rows.rows[0].rows == std::vector<std::size_t>{18}); // 300 V of the third opening
     CHECK(rows.rows[0].sigma == 0.4);
+    CHECK_FALSE(rows.rows[1].sigma);
     const std::string html = page_of(folder.path, "study_measured");
     CHECK(has(html, "60 nm, measured"));
     CHECK(has(html, "1 measured row belongs to no point"));

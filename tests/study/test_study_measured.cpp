@@ -33,6 +33,33 @@ TEST_CASE("measured rows are joined to points by values within a tolerance") {
     CHECK(join_measured(folder.load("")).rows.empty());
 }
 
+TEST_CASE("measured rows are written beside what is predicted at their points") {
+    const StudyFolder folder;
+    folder.write("split.csv", "amplitude_V, cd_mean_nm, sigma\n100, 2.5, 0.4\n300, 3, 0.4\n");
+    const Study study =
+        folder.load("vary:\n  plasmas.main.rf_bias.amplitude: [100 V, 200 V]\n"
+                    "answer: {y: bow, x: amplitude}\n"
+                    "compare: {measured: split.csv, join: [amplitude], value: cd_mean_nm, "
+                    "sigma: sigma}\n");
+    using Role = StudyTableColumn::Role;
+    StudyTable table;
+    for (const auto& [role, name] : {std::pair(Role::point, "point"),
+                                     {Role::input, "amplitude"},
+                                     {Role::metric, "bow"},
+                                     {Role::error, "bow error"}}) {
+        StudyTableColumn column;
+        column.role = role;
+        column.name = column.label = name;
+        table.columns.push_back(column);
+    }
+    for (const char* cell : {"0001", "100", "2.75", "0.1", "0002", "200", "3", "0.1"})
+        table.add_cell(cell);
+    const std::string text = measured_csv(study, table);
+    CHECK(text.find("# unmatched = split.csv:3: no point with amplitude 300 V\n") !=
+          std::string::npos);
+    CHECK(text.find("\n2,0001,2.5,0.4,,2.75,0.1,0.25\n") != std::string::npos);
+}
+
 TEST_CASE("effects are told for every metric of a table of results, the answer first") {
     const StudyFolder folder;
     const Study study = folder.load("vary:\n  mask.openings.line.cd: [30 nm, 60 nm]\n"
