@@ -9,5 +9,6 @@ cmake --build build --parallel "$(nproc)" --target rille
 out=${1:-out/poly-trench}
 build/rille run examples/poly-trench/case.yaml -o "$out" --force
 echo
-echo "The profile as a picture:  $out/profile.svg (and profile.png)"
-echo "Every number:              $out/metrics.json, history.csv, profile.csv"
+echo "The report, for a browser: $out/report.html"
+echo "The profile as a picture:   $out/profile.svg (and profile.png)"
+echo "Every number:               $out/metrics.json, history.csv, profile.csv"
