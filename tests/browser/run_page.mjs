@@ -170,7 +170,7 @@ for (const [name, outcome] of Object.entries(expected))
     await page.keyboard.press('ArrowLeft');
     const turned = await look();
     check(turned !== before, 'the left arrow does not turn the surface');
-    await canvas.evaluate(one => one.scrollIntoView({block: 'center'}));
+    await canvas.evaluate(one => one.scrollIntoView({block: 'center', behavior: 'instant'}));
     const box = await canvas.boundingBox();
     await page.mouse.move(box.x + 300, box.y + 200);
     await page.mouse.down();
