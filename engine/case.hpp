@@ -4,6 +4,7 @@
 #include "engine/measured.hpp"
 #include "engine/open_parameter.hpp"
 #include "engine/plasma.hpp"
+#include "engine/start_contour.hpp"
 #include "fluxes/mechanism.hpp"
 #include "geometry/domain.hpp"
 #include "geometry/initial_shape.hpp"
@@ -64,8 +65,9 @@ struct Case {
     std::vector<geometry::Film> films;  ///< mask first if there is one
     int substrate_first = 0;            ///< index of the first film below the mask in `films`
     geometry::MaskShape mask;
-    std::string mask_material;  ///< empty without a mask
-    double liner_thickness = 0; ///< [nm] conformal film at the start, 0 = none
+    std::string mask_material;         ///< empty without a mask
+    std::optional<StartContour> start; ///< the front at the start; none: mask and stack as drawn
+    double liner_thickness = 0;        ///< [nm] conformal film at the start, 0 = none
     int liner_material = -1;
     std::map<std::string, Plasma> plasmas;
     std::string chemistry;                         ///< name, or name of its file
@@ -79,6 +81,7 @@ struct Case {
     std::vector<RecipeStep> steps;
     std::map<std::string, Place> cd_places; ///< "top", "middle", "bottom"
     double frame_interval_s = 0;            ///< how often a frame is written; 0 = 10 frames a run
+    std::vector<double> arc_data_s; ///< times at which arrivals along the surface are written
     std::vector<Target> targets;
     MeasuredData measured;             ///< what the result is compared with
     std::vector<std::string> tool_log; ///< "key: value" kept with the result, not used

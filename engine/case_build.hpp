@@ -47,6 +47,8 @@ int material_index(Case&, const Entry& name);
 void build_domain(const Entry& root, Case&, Problems&);
 void build_stack(const Entry& root, Case&, Problems&);
 void build_mask(const Entry& root, Case&, Problems&);
+/// Contour that the run starts from; after build_mask.
+void build_start(const Entry& root, Case&, Problems&);
 void build_plasmas(const Entry& root, Case&, Problems&);
 /// Part of build_plasmas: rf_bias, pulse and ion_energies of one plasma.
 void build_bias(const Entry& plasma_entry, Case&, Plasma&, Problems&);
@@ -57,6 +59,9 @@ void build_measure(Entry& root, Case&, Problems&);
 void build_targets(const Entry& root, Case&, Problems&);
 /// Contour and CD table to compare with; after build_measure.
 void build_measured(const Entry& root, Case&, Problems&);
+/// "0.82 nm/px" and "512, 40 px" under scale and origin of an entry with a contour; what is wrong
+/// is added.
+void read_frame(const Entry& entry, ContourFrame&, Problems&);
 /// The mechanism for the materials, ions and neutrals of the case; masses of the ions.
 void build_chemistry(const Entry& root, const std::string& folder, Case&, Problems&);
 /// What reaches the wafer, once species have masses: fluxes of neutrals that were given by density,

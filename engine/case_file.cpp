@@ -58,6 +58,7 @@ BuiltCase build_case(YamlNode node, const std::string& name, const std::string& 
     build_domain(root, result, problems);
     build_stack(root, result, problems);
     build_mask(root, result, problems);
+    build_start(root, result, problems);
     build_plasmas(root, result, problems);
     build_recipe(root, result, problems);
     build_measure(root, result, problems);

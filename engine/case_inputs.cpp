@@ -49,7 +49,8 @@ void keep_files_below(Entry& entry, std::vector<InputFile>& inputs) {
 void keep_inputs(Entry& root, Case& result) {
     for (auto& [key, value] : root.members) {
         if (key == "chemistry") keep(value, result.inputs);
-        if (key == "plasmas" || key == "measured") keep_files_below(value, result.inputs);
+        if (key == "plasmas" || key == "measured" || key == "start")
+            keep_files_below(value, result.inputs);
     }
 }
 

@@ -11,6 +11,35 @@
 namespace rille::engine {
 namespace {
 
+/// A positive number before `unit`; the form has been promised by the table.
+std::optional<double> number_before(const Entry& entry, const std::string& unit,
+                                    Problems& problems) {
+    const NumberText read = split_number(entry.text);
+    if (read.error.empty() && read.unit == unit && read.value > 0) return read.value;
+    problems.add(
+        entry.at, entry.path,
+        fmt::format("{}: a number above 0 with the unit {} is due", quoted(entry.text), unit));
+    return std::nullopt;
+}
+
+/// "512, 40 px" or "0, 12 nm".
+std::array<double, 2> origin_of(const Entry& entry, bool in_pixels, Problems& problems) {
+    const std::size_t comma = entry.text.find(',');
+    const std::string unit = in_pixels ? "px" : "nm";
+    const NumberText x = split_number(entry.text.substr(0, comma));
+    const NumberText y =
+        split_number(comma == std::string::npos ? "" : entry.text.substr(comma + 1));
+    const bool is_good = comma != std::string::npos && x.error.empty() && y.error.empty() &&
+                         y.unit == unit && (x.unit.empty() || x.unit == unit);
+    if (!is_good)
+        problems.add(entry.at, entry.path,
+                     fmt::format("{}: two numbers with the unit {} are due, for example 512, "
+                                 "40 {}{}",
+                                 quoted(entry.text), unit, unit,
+                                 in_pixels ? "" : " (with scale the points are in pixels)"));
+    return {x.value, y.value};
+}
+
 struct MeasuredReader {
     const Entry& measured;
     Case& result;
@@ -35,32 +64,6 @@ struct MeasuredReader {
         wrong(name, fmt::format("no opening is called {}; there are: {}{}", quoted(name.text),
                                 listed(names, 8), did_you_mean(name.text, names)));
         return nullptr;
-    }
-
-    /// A positive number before `unit`; the form has been promised by the table.
-    std::optional<double> number_before(const Entry& entry, const std::string& unit) {
-        const NumberText read = split_number(entry.text);
-        if (read.error.empty() && read.unit == unit && read.value > 0) return read.value;
-        wrong(entry, fmt::format("{}: a number above 0 with the unit {} is due", quoted(entry.text),
-                                 unit));
-        return std::nullopt;
-    }
-
-    /// "512, 40 px" or "0, 12 nm".
-    std::array<double, 2> origin(const Entry& entry, bool in_pixels) {
-        const std::size_t comma = entry.text.find(',');
-        const std::string unit = in_pixels ? "px" : "nm";
-        const NumberText x = split_number(entry.text.substr(0, comma));
-        const NumberText y =
-            split_number(comma == std::string::npos ? "" : entry.text.substr(comma + 1));
-        const bool is_good = comma != std::string::npos && x.error.empty() && y.error.empty() &&
-                             y.unit == unit && (x.unit.empty() || x.unit == unit);
-        if (!is_good)
-            wrong(entry, fmt::format("{}: two numbers with the unit {} are due, for example 512, "
-                                     "40 {}{}",
-                                     quoted(entry.text), unit, unit,
-                                     in_pixels ? "" : " (with scale the points are in pixels)"));
-        return {x.value, y.value};
     }
 
     /// "3 nm" or "0 to 4 nm".
@@ -94,10 +97,7 @@ struct MeasuredReader {
         ContourFrame frame;
         frame.axis_x = feature.centre_x;
         const std::size_t before = problems.size();
-        const Entry& scale = measured["scale"];
-        if (scale.is_good) frame.nm_per_px = number_before(scale, "nm/px");
-        if (measured["origin"].is_good) frame.origin = origin(measured["origin"], scale.is_good);
-        if (measured["rotation"].is_good) frame.rotation_deg = measured["rotation"].number;
+        read_frame(measured, frame, problems);
         if (measured["cut_offset"].is_good) cut_offset(measured["cut_offset"], contour);
         if (problems.size() != before) return;
         contour.points = read_contour(file.text, frame, problems);
@@ -131,6 +131,13 @@ struct MeasuredReader {
 };
 
 } // namespace
+
+void read_frame(const Entry& entry, ContourFrame& frame, Problems& problems) {
+    const Entry& scale = entry["scale"];
+    if (scale.is_good) frame.nm_per_px = number_before(scale, "nm/px", problems);
+    if (entry["origin"].is_good) frame.origin = origin_of(entry["origin"], scale.is_good, problems);
+    if (entry["rotation"].is_good) frame.rotation_deg = entry["rotation"].number;
+}
 
 void build_measured(const Entry& root, Case& result, Problems& problems) {
     const Entry& measured = root["measured"];

@@ -210,7 +210,7 @@ void absolute_files(YamlNode& root, const std::string& folder) {
     const std::string text = chemistry ? chemistry->text : "";
     if (text.find('/') != std::string::npos || text.find(".yaml") != std::string::npos)
         make_absolute(chemistry, folder);
-    for (const char* key : {"plasmas", "measured"})
+    for (const char* key : {"plasmas", "measured", "start"})
         if (YamlNode* part = root.find(key)) make_files_absolute(*part, folder);
 }
 

@@ -175,6 +175,8 @@ void build_recipe(const Entry& root, Case& result, Problems& problems) {
     }
     const Entry& every = root["frames"]["every"];
     result.frame_interval_s = every.is_good ? every.number : 0;
+    const Entry& arc_data = root["arc_data"]["at"];
+    if (arc_data.is_good && arc_data.is_given) result.arc_data_s = arc_data.numbers;
 }
 
 } // namespace rille::engine

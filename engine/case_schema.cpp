@@ -136,13 +136,28 @@ Rule measured_rule() {
         "measured profile and CDs, laid over the result");
 }
 
+Rule start_rule() {
+    return map_rule(
+        "start",
+        {text_rule("contour", "CSV of the surface to start from, from side to side with the gas on "
+                              "the left: x_nm, z_nm or x_px, y_px (y down), or profile.csv of a "
+                              "run")
+             .required(),
+         sentence_rule("scale", "X nm/px", "^[0-9.eE+-]+ *nm/px$", "size of a pixel"),
+         sentence_rule("origin", "X, Y px or X, Z nm", "^[^,]+,[^,]+(px|nm)$",
+                       "the point of the contour that lies in the middle of the period at the mask "
+                       "bottom as drawn; default 0, 0"),
+         quantity_rule("rotation", D::angle, {-180, 180}, "turns the contour anticlockwise")},
+        "what the etch starts from, instead of mask and stack as drawn; mask and stack still say "
+        "which material lies where");
+}
+
 std::vector<Rule> later_rules() {
     const char* study = "belongs into a study file, which names this case as its base: rille study";
     std::vector<Rule> rules = {
         later_rule("accuracy", "the spacing is not chosen for you; give spacing"),
         later_rule("layout", "mask layouts are not read; write mask.openings"),
-        later_rule("start", "runs start from the fresh stack; leave it out"),
-        later_rule("contour", "runs start from the fresh stack; leave it out"),
+        refused_rule("contour", "a contour to start from is named under start: {contour: FILE}"),
         later_rule("fit", "parameters are not fitted; leave it out")};
     for (const char* key : {"base", "vary", "compare", "plan", "linked", "answer", "keep", "slurm"})
         rules.push_back(refused_rule(key, study));
@@ -164,7 +179,8 @@ Rule make_case_rules() {
     Rule root = map_rule(
         "",
         {integer_rule("format", {1, 1}, "version of this form").required(),
-         text_rule("title", "one line that says what the case is").by_default("untitled"), symmetry,
+         text_rule("title", "one line that says what the case is").by_default("untitled"),
+         symmetry,
          quantities_rule("pitch", D::length, above_zero(),
                          "width of the simulated period; full: one length or [x, y]")
              .required(),
@@ -180,6 +196,7 @@ Rule make_case_rules() {
                        .required()},
                   "conformal film over mask and stack at the start"),
          mask_rule(),
+         start_rule(),
          dictionary_rule("tool_log", anything_rule("", "as written"),
                          "set points kept with the result, not used by the model"),
          dictionary_rule("plasmas", plasma_rule().required(), "states of the plasma, by name")
@@ -197,12 +214,20 @@ Rule make_case_rules() {
                   .by_default("{}")},
              "what is measured beyond the standard list")
              .by_default("{}"),
-         targets, measured_rule(),
+         targets,
+         measured_rule(),
          map_rule("frames",
                   {quantity_rule("every", D::time, above_zero(),
                                  "time between two frames; default: ten frames a run")},
                   "how often the shape is written")
              .by_default("{}"),
+         map_rule("arc_data",
+                  {quantities_rule("at", D::time, zero_or_more(),
+                                   "times of the run: one, or a list [10 s, 20 s]")
+                       .items(1, 1000)
+                       .required()},
+                  "when arrivals, coverages and rates with their causes are written along the "
+                  "surface"),
          map_rule("sampling",
                   {quantity_rule("renew_after", D::share, {0, 1, true, false},
                                  "share of a cell that the front moves before arrivals are traced "

@@ -67,6 +67,7 @@ public:
         progress_.update(state);
     }
     void framed(const SurfaceState& state) override { output_.add_frame(state); }
+    void surveyed(const SurfaceFlux& flux) override { output_.add_arc_data(flux); }
     void warned(const std::string& text) override { progress_.note("warning: " + text); }
     /// With each frame, at least twice a minute, and when the run is told to stop.
     void resumable(bool frame_due, const std::function<RunState()>& state) override {

@@ -36,6 +36,10 @@ int check_command(const std::string& case_path, const CommonOptions&);
 /// `folder` unless it is empty.
 int sheath_command(const std::string& case_path, const std::string& folder, bool force,
                    const CommonOptions&);
+/// Evaluates arrivals and rates on the surface with which a case starts, without moving it, under
+/// the plasma named (empty: that of the first step); writes tables and a picture into `folder`.
+int flux_command(const std::string& case_path, const std::string& plasma, const std::string& folder,
+                 bool force, const CommonOptions&);
 /// Measures the last state that a run left in `folder` again, under the case kept there with the
 /// overrides given (`--set measure.cd.top=...`).
 int measure_command(const std::string& folder, const CommonOptions&);

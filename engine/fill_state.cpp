@@ -86,6 +86,10 @@ void fill_state(SurfaceState& state, const Case& c, const fluxes::SurfaceStep& s
     for (std::size_t i = 0; i < step.ion_flux.size(); ++i)
         add_field(state, "ion_flux_" + c.mechanism.ions.at(i), "per_nm2_s",
                   [&](std::size_t e) { return step.ion_flux[i][e]; });
+    for (std::size_t i = 0; i < step.fast_neutral_flux.size(); ++i)
+        if (!step.fast_neutral_flux[i].empty())
+            add_field(state, "fast_neutral_flux_" + c.mechanism.ions.at(i), "per_nm2_s",
+                      [&](std::size_t e) { return step.fast_neutral_flux[i][e]; });
     for (std::size_t i = 0; i < step.neutral.size(); ++i)
         add_field(state, "neutral_flux_" + c.mechanism.neutrals.at(i), "per_nm2_s",
                   [&](std::size_t e) { return step.neutral[i][e]; });

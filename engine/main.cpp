@@ -178,6 +178,10 @@ int dispatch(int argc, char** argv) {
     std::string sheath_folder;
     auto* sheath = app.add_subcommand(
         "sheath", "Show what reaches the wafer: energies, angles and fluxes of the ions");
+    std::string flux_plasma;
+    auto* flux = app.add_subcommand(
+        "flux", "Show arrivals, coverages and rates with their causes along the surface as a case "
+                "starts, without moving it");
     auto* measure = app.add_subcommand("measure", "Measure a finished run again");
     StudyCommands studies;
     studies.add(app);
@@ -200,6 +204,14 @@ int dispatch(int argc, char** argv) {
     sheath->add_flag("--force", force, "Replace what an earlier command left in the folder");
     sheath->footer("Voltages are those of a model, not permitted settings of a tool.\n" +
                    std::string(engine::caution));
+    flux->add_option("case", path, "Case file (YAML)")->type_name("FILE")->required();
+    flux->add_option("--plasma", flux_plasma, "Plasma that burns (default: that of the first step)")
+        ->type_name("NAME");
+    flux->add_option("-o", folder, "Folder for tables and picture")
+        ->type_name("DIR")
+        ->capture_default_str();
+    flux->add_flag("--force", force, "Replace what an earlier command left in the folder");
+    flux->footer(engine::caution);
     resume->add_option("folder", folder, "Folder of the run")->type_name("DIR")->required();
     resume->footer(engine::caution);
     measure->add_option("folder", folder, "Folder of a run")->type_name("DIR")->required();
@@ -214,17 +226,17 @@ int dispatch(int argc, char** argv) {
         "--figures", figures,
         "Write each figure as SVG and as PNG of 1920 x 1080 into the folder figures too");
     report->footer(engine::caution);
-    for (CLI::App* command : {run, check, sheath, measure, studies.study})
+    for (CLI::App* command : {run, check, sheath, flux, measure, studies.study})
         add_overrides(*command, options);
     for (CLI::App* command :
-         {run, resume, check, sheath, measure, studies.study, studies.worker, studies.task})
+         {run, resume, check, sheath, flux, measure, studies.study, studies.worker, studies.task})
         add_common(*command, options);
-    for (CLI::App* command : {run, sheath})
+    for (CLI::App* command : {run, sheath, flux})
         add_seed(*command, options);
     for (CLI::App* command : {run, resume, studies.study})
         command->add_flag("--require-targets", options.require_targets,
                           "Exit with 6 unless every target is met; undecided is not met");
-    for (CLI::App* command : {run, resume, sheath, report, studies.study})
+    for (CLI::App* command : {run, resume, sheath, flux, report, studies.study})
         command->add_flag("--quiet", options.quiet, "Print nothing but errors");
     try {
         app.parse(argc, argv);
@@ -240,6 +252,7 @@ int dispatch(int argc, char** argv) {
         limit.emplace(tbb::global_control::max_allowed_parallelism, options.threads);
     if (*check) return engine::check_command(path, options);
     if (*sheath) return engine::sheath_command(path, sheath_folder, force, options);
+    if (*flux) return engine::flux_command(path, flux_plasma, folder, force, options);
     if (*measure) return engine::measure_command(folder, options);
     if (*report) return engine::report_command(folders, place, figures, options);
     if (*schema) return engine::schema_command(of_study);

@@ -1,6 +1,7 @@
 // SPDX-License-Identifier: Apache-2.0
 #pragma once
 
+#include "engine/csv_rows.hpp"
 #include "engine/problems.hpp"
 
 #include <array>
@@ -16,6 +17,8 @@ struct ContourFrame {
     std::array<double, 2> origin{};  ///< the point of the feature's axis at z = 0, as in the file
     double rotation_deg = 0;         ///< turns the picture anticlockwise about the origin
     double axis_x = 0;               ///< [nm] where the feature stands
+    std::string key = "measured";    ///< of the case, in messages
+    bool revolved = false;           ///< r_nm stands for x_nm; pixels count from the axis
 };
 
 /// A contour traced from a micrograph, in the frame of the case.
@@ -47,6 +50,11 @@ std::vector<std::array<double, 2>> read_contour(const std::string& path, const C
                                                 Problems&);
 std::vector<std::array<double, 2>> parse_contour(const std::string& text, const std::string& name,
                                                  const ContourFrame&, Problems&);
+
+/// The same of rows that are read already; point i comes from rows[i + 1].
+std::vector<std::array<double, 2>> contour_points(const CsvRows&, const ContourFrame&, Problems&);
+/// A point of the file in the frame of the case.
+std::array<double, 2> placed(const ContourFrame&, double x, double y, bool in_pixels);
 
 /// Rows of a CD table: CSV with the columns cd, mean_nm, sigma_nm, sites, with `feature` before
 /// them where there are several openings. Names are checked against those given.

@@ -15,35 +15,6 @@ constexpr double normal_95 = 1.959964; // two-sided 95 % point of the normal dis
 
 using Points = std::vector<std::array<double, 2>>;
 
-Points contour_of(const CsvRows& csv, const ContourFrame& frame, Problems& problems) {
-    const std::size_t before = problems.size();
-    const bool in_pixels =
-        !csv.rows.empty() && !csv.rows[0].empty() && csv.rows[0][0].text == "x_px";
-    const std::vector<std::string> names = in_pixels ? std::vector<std::string>{"x_px", "y_px"}
-                                                     : std::vector<std::string>{"x_nm", "z_nm"};
-    const auto columns = csv_columns(csv, names, problems);
-    if (in_pixels && !frame.nm_per_px)
-        problems.add(csv.rows[0][0].at, "",
-                     "the points are in pixels: measured.scale is due, for example 0.82 nm/px");
-    if (!in_pixels && frame.nm_per_px && problems.size() == before)
-        problems.add(csv.rows[0][0].at, "", "the points are in nm: leave measured.scale out");
-    if (problems.size() != before) return {};
-    if (columns[0].size() < 2) {
-        problems.add({csv.name, 0, 0}, "", "holds fewer than two points");
-        return {};
-    }
-    const double scale = in_pixels ? *frame.nm_per_px : 1, up = in_pixels ? -1 : 1;
-    const double turn = frame.rotation_deg * M_PI / 180;
-    Points points;
-    for (std::size_t i = 0; i < columns[0].size(); ++i) {
-        const double x = scale * (columns[0][i] - frame.origin[0]);
-        const double z = up * scale * (columns[1][i] - frame.origin[1]);
-        points.push_back({frame.axis_x + x * std::cos(turn) - z * std::sin(turn),
-                          x * std::sin(turn) + z * std::cos(turn)});
-    }
-    return points;
-}
-
 /// A name of the table that must be one of those known.
 bool is_known(const CsvCell& cell, const std::vector<std::string>& known, const char* what,
               Problems& problems) {
@@ -99,19 +70,56 @@ std::vector<MeasuredCd> cd_table_of(const CsvRows& csv, const std::vector<std::s
 
 } // namespace
 
+std::array<double, 2> placed(const ContourFrame& frame, double x, double y, bool in_pixels) {
+    const double scale = in_pixels ? frame.nm_per_px.value_or(1) : 1, up = in_pixels ? -1 : 1;
+    const double across = scale * (x - frame.origin[0]);
+    const double height = up * scale * (y - frame.origin[1]);
+    if (frame.rotation_deg == 0) return {frame.axis_x + across, height};
+    const double turn = frame.rotation_deg * M_PI / 180;
+    return {frame.axis_x + across * std::cos(turn) - height * std::sin(turn),
+            across * std::sin(turn) + height * std::cos(turn)};
+}
+
+Points contour_points(const CsvRows& csv, const ContourFrame& frame, Problems& problems) {
+    const std::size_t before = problems.size();
+    const bool in_pixels =
+        !csv.rows.empty() && !csv.rows[0].empty() && csv.rows[0][0].text == "x_px";
+    const std::vector<std::string> names =
+        in_pixels ? std::vector<std::string>{"x_px", "y_px"}
+                  : std::vector<std::string>{frame.revolved ? "r_nm" : "x_nm", "z_nm"};
+    const auto columns = csv_columns(csv, names, problems);
+    if (in_pixels && !frame.nm_per_px)
+        problems.add(csv.rows[0][0].at, "",
+                     fmt::format("the points are in pixels: {}.scale is due, for example 0.82 "
+                                 "nm/px",
+                                 frame.key));
+    if (!in_pixels && frame.nm_per_px && problems.size() == before)
+        problems.add(csv.rows[0][0].at, "",
+                     fmt::format("the points are in nm: leave {}.scale out", frame.key));
+    if (problems.size() != before) return {};
+    if (columns[0].size() < 2) {
+        problems.add({csv.name, 0, 0}, "", "holds fewer than two points");
+        return {};
+    }
+    Points points;
+    for (std::size_t i = 0; i < columns[0].size(); ++i)
+        points.push_back(placed(frame, columns[0][i], columns[1][i], in_pixels));
+    return points;
+}
+
 double MeasuredCd::error() const {
     return normal_95 * sigma_nm / std::sqrt(static_cast<double>(sites));
 }
 
 Points parse_contour(const std::string& text, const std::string& name, const ContourFrame& frame,
                      Problems& problems) {
-    return contour_of(split_csv(text, name), frame, problems);
+    return contour_points(split_csv(text, name), frame, problems);
 }
 
 Points read_contour(const std::string& path, const ContourFrame& frame, Problems& problems) {
     const std::size_t before = problems.size();
     const CsvRows csv = read_csv(path, path, problems);
-    return problems.size() == before ? contour_of(csv, frame, problems) : Points{};
+    return problems.size() == before ? contour_points(csv, frame, problems) : Points{};
 }
 
 std::vector<MeasuredCd> parse_cd_table(const std::string& text, const std::string& name,

@@ -67,8 +67,14 @@ void remove_earlier_run(const std::string& path) {
         if (error) throw OutputError(path + "/" + name, "cannot remove the file", error.message());
         remove_quietly(temporary(fs::path(path) / name)); // of a run that was killed
     }
-    for (const char* name : {output_names::state, output_names::comparison, output_names::report})
+    for (const char* name : {output_names::state, output_names::comparison, output_names::report,
+                             output_names::flux_csv, output_names::flux_json,
+                             output_names::flux_svg, output_names::flux_png})
         remove_quietly((fs::path(path) / name).string());
+    const fs::path arc_data = fs::path(path) / output_names::arc_data;
+    if (fs::is_directory(arc_data, error))
+        for (const auto& entry : fs::directory_iterator(arc_data, error))
+            if (entry.path().extension() == ".csv") remove_quietly(entry.path().string());
     const fs::path figures = fs::path(path) / output_names::figures;
     if (fs::is_directory(figures, error))
         for (const auto& entry : fs::directory_iterator(figures, error))

@@ -46,10 +46,7 @@ std::string name_at(const std::vector<std::string>& names, const std::vector<int
 }
 
 std::string header(const Case& c, const SurfaceState& state) {
-    std::string text = c.domain.extruded()
-                           ? "x_nm,z_nm,arc_length_nm,normal_deg,length_nm,chain"
-                           : "x_nm,y_nm,z_nm,normal_x_1,normal_y_1,normal_z_1,area_nm2,chain";
-    text += ",material,film";
+    std::string text = place_header(c) + ",material,film";
     for (const int material : state.grown.material)
         text += ",grown_" + column_name(c.materials.at(material)) + "_nm";
     text += ",rate_nm_per_min,sampling_error_nm";
@@ -58,9 +55,15 @@ std::string header(const Case& c, const SurfaceState& state) {
     return text + "\n";
 }
 
-std::string place(const Case& c, const SurfaceState& state, const std::vector<double>& arc,
-                  std::size_t e) {
-    const geometry::Surface& s = state.surface;
+} // namespace
+
+std::string place_header(const Case& c) {
+    return c.domain.extruded() ? "x_nm,z_nm,arc_length_nm,normal_deg,length_nm,chain"
+                               : "x_nm,y_nm,z_nm,normal_x_1,normal_y_1,normal_z_1,area_nm2,chain";
+}
+
+std::string place_row(const Case& c, const geometry::Surface& s, const std::vector<double>& arc,
+                      std::size_t e) {
     const geometry::Vec3 p = s.centre[e], n = s.normal[e];
     std::string text = shortest(p.x);
     const auto add = [&](double value) { text += "," + shortest(value); };
@@ -78,7 +81,12 @@ std::string place(const Case& c, const SurfaceState& state, const std::vector<do
     return text + "," + std::to_string(s.chain.empty() ? 0 : s.chain[e]);
 }
 
-} // namespace
+std::string material_row(const Case& c, const SurfaceState& state, std::size_t e) {
+    const int film = state.film.empty() ? -1 : state.film[e];
+    const bool is_film = film >= 0 && film < static_cast<int>(c.films.size());
+    return "," + name_at(c.materials, state.material, e) + "," +
+           (is_film ? csv_field(c.films[film].name) : "");
+}
 
 double sampling_error(const std::vector<double>& batch_deviation) {
     const double batches = static_cast<double>(batch_deviation.size());
@@ -102,16 +110,12 @@ std::vector<double> arc_length(const geometry::Surface& s) {
 }
 
 std::string profile_csv(const Case& c, const SurfaceState& state) {
-    std::vector<std::string> films;
-    for (const auto& film : c.films)
-        films.push_back(film.name);
     const std::vector<double> arc =
         c.domain.extruded() ? arc_length(state.surface) : std::vector<double>();
     const std::vector<double> errors = element_errors(state);
     std::string text = header(c, state);
     for (std::size_t e = 0; e < state.surface.size(); ++e) {
-        text += place(c, state, arc, e);
-        text += "," + name_at(c.materials, state.material, e) + "," + name_at(films, state.film, e);
+        text += place_row(c, state.surface, arc, e) + material_row(c, state, e);
         for (const auto& thickness : state.grown.thickness)
             text += "," + shortest(thickness[e]);
         text += ",";

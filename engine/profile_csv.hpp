@@ -14,6 +14,14 @@ namespace rille::engine {
 /// error of the element's position along its normal.
 std::string profile_csv(const Case&, const SurfaceState&);
 
+/// What profile.csv and files like it say of an element's place: names of the columns, and their
+/// values for element e. `arc` is arc_length() of the surface, empty in full.
+std::string place_header(const Case&);
+std::string place_row(const Case&, const geometry::Surface&, const std::vector<double>& arc,
+                      std::size_t e);
+/// Material and film of an element, each after a comma; empty where they are not known.
+std::string material_row(const Case&, const SurfaceState&, std::size_t e);
+
 /// 95 % half-width of a value with one deviation per batch: t SE with
 /// SE^2 = sum w_b^2 / (B (B - 1)) and Student's t for B - 1 degrees of freedom (2.365 for 8
 /// batches). 0 for fewer than two batches.

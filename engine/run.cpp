@@ -23,6 +23,8 @@ SurfaceState snapshot(const Case& the_case, Simulation& simulation, bool solved 
     state.surface = simulation.surface();
     state.grown = simulation.films();
     state.displacement = simulation.displacement_errors();
+    for (const geometry::SurfaceField& field : simulation.removed())
+        state.removed.push_back(field.value);
     if (solved)
         fill_state(state, the_case, simulation.arrivals());
     else
@@ -250,18 +252,36 @@ struct Course {
     }
 };
 
+/// The next time at which arrivals and causes are written along the surface.
+double next_arc_data(const Course& run) {
+    double next = std::numeric_limits<double>::infinity();
+    for (const double time : run.the_case.arc_data_s)
+        if (time > run.simulation.time_s() * (1 + 1e-12)) next = std::min(next, time);
+    return next;
+}
+
+void write_arc_data(Course& run) {
+    const std::size_t step = std::min(run.simulation.step_index(), run.the_case.steps.size() - 1);
+    const std::string& plasma = run.simulation.arriving_plasma();
+    SurfaceFlux flux = surface_flux(run.the_case, run.simulation, plasma);
+    flux.state.step = run.the_case.steps[step].name;
+    run.observer.surveyed(flux);
+}
+
 /// One refresh, told to the observer.
 void one_refresh(Course& run) {
     Simulation& simulation = run.simulation;
     const std::size_t index = simulation.step_index();
     const double start_s = simulation.outcomes().empty() ? 0.0 : simulation.outcomes().back().end_s;
-    simulation.step(run.state.next_frame_s);
+    const double arc_data_s = next_arc_data(run);
+    simulation.step(std::min(run.state.next_frame_s, arc_data_s));
     std::vector<HistoryRow>& history = run.state.history;
     history.push_back(
         history_row(run.the_case, simulation, run.the_case.steps[index].name, start_s));
     const double of_step = simulation.step_index() > index ? 1.0 : simulation.step_progress();
     run.watch.look(simulation, history.back());
     run.observer.progressed(simulation, history.back(), run.expected.share(index, of_step));
+    if (simulation.time_s() >= arc_data_s * (1 - 1e-12)) write_arc_data(run);
     const bool frame_due = simulation.time_s() >= run.state.next_frame_s * (1 - 1e-12);
     if (frame_due) {
         if (!simulation.finished()) run.observer.framed(snapshot(run.the_case, simulation));
@@ -279,6 +299,8 @@ RunResult follow_recipe(Course& run) {
         if (run.state.history.empty()) {
             run.observer.framed(snapshot(run.the_case, simulation));
             run.state.next_frame_s = run.frame_interval();
+            const auto& times = run.the_case.arc_data_s;
+            if (std::find(times.begin(), times.end(), 0.0) != times.end()) write_arc_data(run);
         }
         while (!simulation.finished() && !run.stop)
             one_refresh(run);

@@ -5,6 +5,7 @@
 #include "engine/run_result.hpp"
 #include "engine/run_state.hpp"
 #include "engine/simulation.hpp"
+#include "engine/surface_flux.hpp"
 
 #include <atomic>
 #include <functional>
@@ -21,6 +22,8 @@ public:
     virtual void progressed(const Simulation&, const HistoryRow&, double share) = 0;
     /// A frame: the front at a time of output, t = 0 and the end included.
     virtual void framed(const SurfaceState&) = 0;
+    /// Arrivals and causes along the surface at a time that the case asks for.
+    virtual void surveyed(const SurfaceFlux&) {}
     /// A warning raised at this point of the run; it is kept in the record as well.
     virtual void warned(const std::string&) {}
     /// After each refresh, when everything of it has been told: the run can be taken up from here.

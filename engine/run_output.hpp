@@ -6,6 +6,7 @@
 #include "engine/picture.hpp"
 #include "engine/run_result.hpp"
 #include "engine/run_state.hpp"
+#include "engine/surface_flux.hpp"
 #include "engine/vtk_files.hpp"
 
 #include <vector>
@@ -17,7 +18,7 @@ struct RunParts {
     bool resolved_case = true; ///< with copies of the files that it names
     bool frames = true;
     bool history = true;
-    bool profile = true; ///< with what a measured contour differs by
+    bool profile = true; ///< with its causes and what a measured contour differs by
     bool level_set = true;
     bool pictures = true; ///< the profile's needs frames where a run may be taken up
     bool record = true;
@@ -38,9 +39,11 @@ public:
     /// Writes one frame and renews the series file. Times must not fall; the first is the start. A
     /// frame at the time of the one before replaces it.
     void add_frame(const SurfaceState&);
-    /// Writes history, profile, metrics, level set, picture and record; adds `result.last` as a
-    /// frame if it is later than the last one. Returns the metrics. May be called again. A run that
-    /// came to its end leaves no state to be taken up.
+    /// Writes arrivals and causes along the surface at one time into the folder arc_data.
+    void add_arc_data(const SurfaceFlux&);
+    /// Writes history, profile, causes, metrics, level set, picture and record; adds `result.last`
+    /// as a frame if it is later than the last one. Returns the metrics. May be called again. A run
+    /// that came to its end leaves no state to be taken up.
     Metrics finish(const RunResult& result) { return finish(result, parts_); }
     /// The same with a choice of its own: a run that failed may leave more than others, and one
     /// that did not loses the frames that it wrote on its way.

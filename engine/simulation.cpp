@@ -41,6 +41,7 @@ private:
 };
 
 geometry::Front initial_front(const Case& c) {
+    if (c.start) return {c.domain, start_distance(c.domain, *c.start), c.start->low, c.start->high};
     const auto distance = geometry::initial_distance(c.domain, c.mask, c.liner_thickness);
     const double margin = 4 * c.domain.spacing;
     return {c.domain, distance, -margin, c.mask.thickness + c.liner_thickness + margin};
@@ -67,6 +68,10 @@ geometry::GrownFilms initial_films(const Case& c, std::size_t elements) {
 geometry::FilmBases initial_bases(const Case& c) {
     std::vector<std::function<double(const Vec3&)>> below;
     const std::size_t films = initial_films(c, 0).material.size();
+    if (c.start) {
+        below.assign(films, films > 0 ? start_distance(c.domain, *c.start) : nullptr);
+        return {c.domain, below, c.start->low, c.start->high};
+    }
     for (std::size_t f = 0; f < films; ++f)
         below.push_back(
             geometry::initial_distance(c.domain, c.mask, f == 0 ? 0.0 : c.liner_thickness));
@@ -98,6 +103,9 @@ Simulation::Simulation(const Case& the_case)
         error_fields_.push_back({"displacement error " + std::to_string(b),
                                  geometry::Carry::intensive,
                                  std::vector<double>(surface_.size(), 0.0)});
+    removed_.assign(
+        unexplained_removal + 1 + fluxes::ion_paths + case_.mechanism.neutrals.size(),
+        {"removed", geometry::Carry::per_area, std::vector<double>(surface_.size(), 0.0)});
     begin_step();
 }
 
@@ -247,6 +255,15 @@ void Simulation::average_rates(fluxes::SurfaceStep& now, const fluxes::SurfaceSt
         for (std::size_t b = 0; b < now.rate_batch.size(); ++b)
             now.rate_batch[b][e] =
                 0.5 * (now.rate_batch[b][e] + later.rate_batch[b][there.element]);
+        const double share = there.partner < 0 ? 0 : there.share;
+        const int partner = there.partner < 0 ? there.element : there.partner;
+        const auto mean = [&](fluxes::CauseFields& mine, const fluxes::CauseFields& other) {
+            for (std::size_t k = 0; k < mine.size(); ++k)
+                mine[k][e] = 0.5 * (mine[k][e] + (1 - share) * other[k][there.element] +
+                                    share * other[k][partner]);
+        };
+        mean(now.cause, later.cause);
+        mean(now.supply, later.supply);
     }
 }
 
@@ -350,6 +367,7 @@ void Simulation::accept(Trial&& trial, const fluxes::SurfaceStep& step) {
         for (std::size_t b = 0; b < step.rate_batch.size(); ++b)
             error_fields_[b].value[e] += (step.rate_batch[b][e] - mean) * dt;
     }
+    if (dt > 0) add_removed(trial, step);
     {
         const Stopwatch watch(timings_.carry);
         std::vector<geometry::SurfaceField> thickness;
@@ -360,6 +378,7 @@ void Simulation::accept(Trial&& trial, const fluxes::SurfaceStep& step) {
             fields.push_back(&field);
         for (auto& field : error_fields_)
             fields.push_back(&field);
+        list_removed(trial.surface.size(), fields);
         geometry::carry_fields(surface_, trial.surface, trial.report.moved, case_.domain.width_x(),
                                case_.domain.width_y(),
                                case_.domain.sides == geometry::Sides::periodic, fields);

@@ -24,6 +24,9 @@ struct Timings {
     double extract = 0, cast = 0, fluxes = 0, advance = 0, carry = 0;
 };
 
+/// Index in Simulation::removed() of what no cause explains; supplies follow.
+constexpr int unexplained_removal = fluxes::cause_count;
+
 /// Counters of everything that could quietly go wrong.
 struct Health {
     std::uint64_t rays = 0, lost_rays = 0;
@@ -72,11 +75,25 @@ public:
     const geometry::GrownFilms& films() const { return films_; }
     /// Displacement error of the elements by batch: [batch][element], nm, along -normal.
     std::vector<std::vector<double>> displacement_errors() const;
+    /// What was removed since the start of the run [nm], on the elements of the present surface:
+    /// by each cause (fluxes::CauseRates), then what no cause explains, then what each supply
+    /// brought (SurfaceStep::supply). An amount per area that rides on the front: causes and the
+    /// unexplained add up to the way that the surface has gone.
+    const std::vector<geometry::SurfaceField>& removed() const { return removed_; }
     /// Outermost material of each element.
     std::vector<int> materials() const;
     /// Arrivals and rates on the present surface under the plasma of the present (or last) step;
     /// after a step has ended still under its own plasma until the next one begins to etch.
     const fluxes::SurfaceStep& arrivals();
+    /// The plasma of those arrivals.
+    const std::string& arriving_plasma() const { return case_.steps[plasma_step_].plasma; }
+    /// Arrivals on the present surface under the named plasma, path by path and batch by batch,
+    /// with the tallies and surfaces of `mechanism`. Leaves the run as it is.
+    struct Examined {
+        fluxes::SurfaceStep step;
+        std::uint64_t rays = 0, lost_rays = 0;
+    };
+    Examined examine(const fluxes::Mechanism& mechanism, const std::string& plasma) const;
     const OpenField& open_field() const { return open_field_; }
     const Health& health() const { return health_; }
     const Timings& timings() const { return timings_; }
@@ -114,6 +131,10 @@ private:
     /// the longest that it might have been. Whether this one may have been far too long.
     bool pace(double change, double share);
     void accept(Trial&&, const fluxes::SurfaceStep&);
+    void add_removed(const Trial&, const fluxes::SurfaceStep&);
+    /// Adds the amounts that must be carried to `fields`; the others are nothing on `size`
+    /// elements.
+    void list_removed(std::size_t size, std::vector<geometry::SurfaceField*>& fields);
     void find_isolated();
     double distance_to_goal(const geometry::Surface&) const;
     double step_end_time() const;
@@ -128,6 +149,7 @@ private:
     geometry::GrownFilms films_;
     geometry::FilmBases bases_;                        ///< one per grown film
     std::vector<geometry::SurfaceField> error_fields_; ///< one per batch
+    std::vector<geometry::SurfaceField> removed_;      ///< see removed()
     fluxes::SurfaceStep present_;
     bool present_valid_ = false;
     /// What the solve of the present arrivals started from: it is done again after a resume.

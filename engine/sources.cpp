@@ -17,8 +17,13 @@ fluxes::Sources sources_of(const Case& the_case, const Plasma& plasma) {
         for (const IonAtWafer& ion : arrivals.ions)
             if (ion.name == name) {
                 source.mass_amu = ion.mass_amu;
-                source.flux = ion.flux + ion.fast_neutral_flux;
-                source.distribution = ion.arriving.front();
+                source.flux = ion.flux;
+                source.distribution = ion.ions.front();
+                if (ion.fast_neutrals.empty() || !(ion.fast_neutral_flux > 0)) continue;
+                // A fast neutral hits like the ion that it was (see IonAtWafer).
+                sources.fast_neutrals.push_back(
+                    {static_cast<int>(sources.ions.size()),
+                     {name, ion.mass_amu, ion.fast_neutral_flux, ion.fast_neutrals.front()}});
             }
         sources.ions.push_back(source);
     }

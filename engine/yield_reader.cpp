@@ -202,6 +202,7 @@ struct Numbers {
         add({l.lambda, l.q, l.mu, l.eps_per_ev, l.threshold_ev});
     }
     void operator()(const ConstantLaw& l) const { add({l.value}); }
+    void operator()(const LinearLaw& l) const { add({l.per_ev}); }
     void operator()(const FlatAngle&) const {}
     void operator()(const PlateauCosine& l) const { add({l.plateau_deg}); }
     void operator()(const PlateauLinear& l) const { add({l.plateau_deg}); }

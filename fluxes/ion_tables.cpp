@@ -79,6 +79,7 @@ struct AppendYield {
         put({3, l.lambda, l.q, l.mu, l.eps_per_ev, l.threshold_ev});
     }
     void operator()(const ConstantLaw& l) const { put({4, l.value}); }
+    void operator()(const LinearLaw& l) const { put({5, l.per_ev}); }
     void operator()(const FlatAngle&) const { put({0}); }
     void operator()(const PlateauCosine& l) const { put({1, l.plateau_deg}); }
     void operator()(const PlateauLinear& l) const { put({2, l.plateau_deg}); }

@@ -206,7 +206,9 @@ SurfaceResponse respond(const Mechanism& mechanism, int material, const LocalArr
         r.coverage[j] = c.theta[j];
         if (balance.film_density[j] > 0.0) not_film -= c.theta[j];
     }
-    const Act act{in, c, std::fmax(not_film, 0.0), surface.density, r};
+    r.bare = c.bare;
+    r.outside_films = std::fmax(not_film, 0.0);
+    const Act act{in, c, r.outside_films, surface.density, r};
     for (const SurfaceProcess& p : surface.processes)
         std::visit(act, p);
     if (c.growing >= 0) {

@@ -69,6 +69,8 @@ struct SurfaceResponse {
     double by_sputtering = 0;
     double by_spontaneous = 0;
     double by_deposition = 0; ///< <= 0
+    double bare = 1;          ///< share of the surface without adsorbates
+    double outside_films = 1; ///< share of the surface outside films that a Deposition builds up
 };
 
 SurfaceResponse respond(const Mechanism&, int material, const LocalArrivals&);

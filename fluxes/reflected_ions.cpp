@@ -25,7 +25,7 @@ constexpr int longest_path = 100000; ///< hits; counted as lost, not cut silentl
 
 /// One contribution, in the order in which a chunk's ions made it.
 struct Deposit {
-    std::size_t slot; ///< m * elements + e
+    std::size_t slot; ///< (bounce class * tallies + m) * elements + e
     double value;
 };
 struct Chunk {
@@ -67,23 +67,33 @@ public:
                 follow(chunks[c], chunks[c].first + i);
         });
         ReflectedIons result;
-        result.value.assign(batches, std::vector<double>(tallies_.size() * surface_.size(), 0.0));
+        const std::size_t slots = tallies_.size() * surface_.size();
+        const bool apart = options_.bounces_by_batch;
+        result.value.assign(batches, std::vector<double>(slots, 0.0));
+        result.by_bounces.assign(apart ? batches : 1, std::vector<double>(bounce_classes * slots));
         double lost = 0, incident = 0;
         for (const IonSource& ion : ions_)
             incident += ion.flux * domain_.width_x() * (domain_.extruded() ? 1 : domain_.width_y());
         for (const Chunk& chunk : chunks) {
-            for (const Deposit& d : chunk.deposits)
-                result.value[chunk.batch][d.slot] += d.value;
+            std::vector<double>& bounces = result.by_bounces[apart ? chunk.batch : 0];
+            const double share = apart ? 1.0 : 1.0 / batches;
+            for (const Deposit& d : chunk.deposits) {
+                result.value[chunk.batch][d.slot % slots] += d.value;
+                bounces[d.slot] += share * d.value;
+            }
             lost += chunk.lost / batches;
         }
-        if (options_.averaged) average(result.value);
+        if (options_.averaged) {
+            average(result.value, tallies_.size());
+            average(result.by_bounces, bounce_classes * tallies_.size());
+        }
         result.lost_share = incident > 0 ? lost / incident : 0.0;
         return result;
     }
 
 private:
-    void average(std::vector<std::vector<double>>& value) const {
-        const std::size_t count = surface_.size(), tallies = tallies_.size();
+    void average(std::vector<std::vector<double>>& value, std::size_t tallies) const {
+        const std::size_t count = surface_.size();
         tbb::parallel_for(std::size_t(0), value.size() * tallies, [&](std::size_t i) {
             double* tally = value[i / tallies].data() + i % tallies * count;
             const std::vector<double> raw(tally, tally + count);
@@ -154,7 +164,8 @@ private:
             const Vec3 mean = normal_[hit.element];
             const double cosine = std::clamp(-hit.direction.dot(mean), 0.0, 1.0);
             if (hits > 0) {
-                deposit(chunk, hit.element, weight * strike.carried, energy, cosine);
+                deposit(chunk, hit, weight * strike.carried, energy, cosine,
+                        std::min(hits, bounce_classes) - 1);
                 own = geometry::normal_at(surface_, hit.element, hit.point);
             }
             if (!(cosine < critical_[material_[hit.element]])) return; // stays
@@ -199,11 +210,13 @@ private:
         return low;
     }
 
-    void deposit(Chunk& chunk, int element, double carried, double energy, double cosine) const {
-        const double flux = carried / surface_.area[element];
+    void deposit(Chunk& chunk, const Hit& hit, double carried, double energy, double cosine,
+                 std::size_t bounces) const {
+        const double flux = carried / surface_.area[hit.element];
         for (const int m : own_tallies_[chunk.ion]) {
             const double value = flux * tallies_[m].yield(energy, cosine);
-            if (value != 0) chunk.deposits.push_back({m * surface_.size() + element, value});
+            const std::size_t row = bounces * tallies_.size() + m;
+            if (value != 0) chunk.deposits.push_back({row * surface_.size() + hit.element, value});
         }
     }
 

@@ -1,6 +1,7 @@
 // SPDX-License-Identifier: Apache-2.0
 #pragma once
 
+#include "fluxes/causes.hpp"
 #include "fluxes/direct_ions.hpp"
 #include "fluxes/exchange.hpp"
 #include "fluxes/mechanism.hpp"
@@ -16,6 +17,9 @@ namespace rille::fluxes {
 struct ReflectedIons {
     /// value[b][m * elements + e]: tally m at element e by batch b [nm^-2 s^-1].
     std::vector<std::vector<double>> value;
+    /// The same by bounces, (k * tallies + m) * elements + e with k = 0, 1, 2 for ions after 1, 2
+    /// and 3 or more: the mean over the batches or, if asked for, one of each batch.
+    std::vector<std::vector<double>> by_bounces;
     double lost_share =
         0; ///< ion flux lost to roulette bookkeeping or lost rays, share of incident
 };
@@ -29,6 +33,7 @@ struct ReflectionOptions {
     /// Tallies averaged over the surroundings like the direct ones: over about five cells of
     /// surface, never across a corner, sums kept.
     bool averaged = true;
+    bool bounces_by_batch = false; ///< ReflectedIons::by_bounces of each batch
 };
 
 /// Ions are drawn where they first strike, in proportion to the direct flux times the probability

@@ -26,13 +26,39 @@ void for_elements(std::size_t n, const Body& body) {
     });
 }
 
+/// Ions and fast neutrals as one list of sources: the mechanism's ions first, and each fast neutral
+/// with tallies of its own, which count for those of the ion that it was.
+struct AllSources {
+    std::vector<IonSource> ions;
+    std::vector<Tally> tallies;
+    std::vector<int> counts_for; ///< tally of the mechanism that each one adds to
+
+    AllSources(const Mechanism& mechanism, const Sources& sources)
+        : ions(sources.ions), tallies(mechanism.tallies) {
+        for (const FastNeutrals& fast : sources.fast_neutrals) {
+            for (const Tally& tally : mechanism.tallies)
+                if (tally.ion == fast.ion)
+                    tallies.push_back({static_cast<int>(ions.size()), tally.yield});
+            ions.push_back(fast.source);
+        }
+        for (int m = 0; m < static_cast<int>(mechanism.tallies.size()); ++m)
+            counts_for.push_back(m);
+        for (const FastNeutrals& fast : sources.fast_neutrals)
+            for (int m = 0; m < static_cast<int>(mechanism.tallies.size()); ++m)
+                if (mechanism.tallies[m].ion == fast.ion) counts_for.push_back(m);
+    }
+};
+
 /// Everything ions bring to the elements at their own normals.
 struct IonArrivals {
     std::shared_ptr<const IonTables> tables;
     std::optional<DirectIons> direct;
-    int tallies = 0;
-    std::vector<double> reflected;          ///< [element][tally], mean over batches
-    std::vector<double> total;              ///< [element][tally], direct and reflected
+    int tallies = 0;             ///< of the mechanism
+    std::vector<int> counts_for; ///< tally of the mechanism that each one of `direct` adds to
+    std::vector<double> by_path; ///< [(element * ion_paths + path) * tallies + m]
+    std::vector<std::vector<double>> by_path_batch; ///< [batch], where they are asked for
+    std::vector<double> reflected;                  ///< [element][tally], mean over batches
+    std::vector<double> total;                      ///< [element][tally], direct and reflected
     std::vector<std::vector<double>> batch; ///< [batch][element][tally]: the same of one batch
 
     const double* at(int element, int b) const {
@@ -60,6 +86,36 @@ struct Setting {
     }
 };
 
+/// Everything that comes to element e, by path and together.
+void add_up(const ReflectedIons& bounced, std::size_t elements, int e, IonArrivals& ions) {
+    const std::size_t m = ions.tallies, all = ions.counts_for.size();
+    double* paths = ions.by_path.data() + std::size_t(e) * ion_paths * m;
+    for (std::size_t t = 0; t < all; ++t) {
+        const std::size_t own = ions.counts_for[t], i = e * m + own;
+        const auto path = [&](int p) { return (t < m ? p : ion_paths - 1) * m + own; };
+        for (int b = 0; b < batches; ++b) {
+            const double part = bounced.value.empty() ? 0 : bounced.value[b][t * elements + e];
+            ions.reflected[i] += part / batches;
+            ions.batch[b][i] += part + ions.direct->tally_batch(b, int(t), e);
+        }
+        paths[path(0)] += ions.direct->tally(int(t), e);
+        for (int k = 0; k < bounce_classes && !bounced.value.empty(); ++k)
+            for (const auto& one : bounced.by_bounces)
+                paths[path(k + 1)] +=
+                    one[(k * all + t) * elements + e] / double(bounced.by_bounces.size());
+        for (std::size_t b = 0; b < ions.by_path_batch.size(); ++b) {
+            double* of_batch = ions.by_path_batch[b].data() + std::size_t(e) * ion_paths * m;
+            of_batch[path(0)] += ions.direct->tally_batch(int(b), int(t), e);
+            for (int k = 0; k < bounce_classes && !bounced.value.empty(); ++k)
+                of_batch[path(k + 1)] += bounced.by_bounces[b][(k * all + t) * elements + e];
+        }
+    }
+    for (std::size_t t = 0; t < all; ++t)
+        ions.total[e * m + ions.counts_for[t]] += ions.direct->tally(int(t), e);
+    for (std::size_t own = 0; own < m; ++own)
+        ions.total[e * m + own] += ions.reflected[e * m + own];
+}
+
 IonArrivals gather_ions(const Setting& s, const std::vector<IonReflection>& reflection,
                         const SurfaceStep* previous) {
     IonArrivals ions;
@@ -68,14 +124,19 @@ IonArrivals gather_ions(const Setting& s, const std::vector<IonReflection>& refl
     ions.reflected.assign(n * m, 0);
     ions.total.assign(n * m, 0);
     ions.batch.assign(batches, std::vector<double>(n * m, 0));
-    if (s.sources.ions.empty()) return ions;
+    ions.by_path.assign(n * ion_paths * m, 0);
     const Sampling& sampling = s.sampling;
+    if (sampling.detailed) ions.by_path_batch.assign(batches, ions.by_path);
+    if (s.sources.ions.empty()) return ions;
+    AllSources all(s.mechanism, s.sources);
+    ions.counts_for = std::move(all.counts_for);
+    const std::size_t species = all.ions.size();
     if (previous && previous->ion_tables &&
-        previous->ion_tables->serves(s.domain.symmetry, s.sources.ions, s.mechanism.tallies))
+        previous->ion_tables->serves(s.domain.symmetry, all.ions, all.tallies))
         ions.tables = previous->ion_tables;
     else
-        ions.tables =
-            std::make_shared<IonTables>(s.domain.symmetry, s.sources.ions, s.mechanism.tallies);
+        ions.tables = std::make_shared<IonTables>(s.domain.symmetry, std::move(all.ions),
+                                                  std::move(all.tallies));
     ions.direct.emplace(
         s.domain, s.surface, s.caster, ions.tables,
         DirectIons::Options{sampling.ion_directions, sampling.seed, sampling.refresh});
@@ -84,20 +145,15 @@ IonArrivals gather_ions(const Setting& s, const std::vector<IonReflection>& refl
         std::vector<int> material(n);
         for (std::size_t e = 0; e < n; ++e)
             material[e] = s.outermost(int(e));
+        ReflectionOptions options{sampling.ions_per_species, sampling.seed, sampling.refresh};
+        // Fast neutrals share the ions' number.
+        options.ions_per_species =
+            static_cast<int>(options.ions_per_species * s.sources.ions.size() / species);
+        options.bounces_by_batch = sampling.detailed;
         bounced = trace_reflected(s.domain, s.surface, s.caster, material, *ions.direct, reflection,
-                                  {sampling.ions_per_species, sampling.seed, sampling.refresh});
+                                  options);
     }
-    for_elements(n, [&](int e) {
-        for (std::size_t t = 0; t < m; ++t) {
-            const std::size_t i = e * m + t;
-            for (int b = 0; b < batches; ++b) {
-                const double part = bounced.value.empty() ? 0 : bounced.value[b][t * n + e];
-                ions.reflected[i] += part / batches;
-                ions.batch[b][i] = part + ions.direct->tally_batch(b, int(t), e);
-            }
-            ions.total[i] = ions.direct->tally(int(t), e) + ions.reflected[i];
-        }
-    });
+    for_elements(n, [&](int e) { add_up(bounced, n, e, ions); });
     return ions;
 }
 
@@ -140,12 +196,13 @@ void tabulate(const Setting& s, const IonArrivals& ions, SurfaceStep& step) {
         const auto neutrals = at_element(step.neutral, e);
         const double* bounced = ions.reflected.data() + std::size_t(e) * ions.tallies;
         std::vector<double> tallies(ions.tallies), last;
-        std::vector<DirectIons::TallyRow> direct(any_ions ? ions.tallies : 0);
+        std::vector<DirectIons::TallyRow> direct(any_ions ? ions.counts_for.size() : 0);
         for (int m = 0; m < int(direct.size()); ++m)
             direct[m] = ions.direct->tally_row(m, e);
         for (std::size_t a = 0; a < angles; ++a) {
-            for (int m = 0; m < ions.tallies; ++m)
-                tallies[m] = bounced[m] + (any_ions ? direct[m].factor * direct[m].value[a] : 0.0);
+            std::copy(bounced, bounced + ions.tallies, tallies.begin());
+            for (std::size_t m = 0; m < direct.size(); ++m)
+                tallies[ions.counts_for[m]] += direct[m].factor * direct[m].value[a];
             const bool same = a > 0 && tallies == last; // turned away from every ion, or no ions
             for (int row = rates.first_row[e]; row < rates.first_row[e + 1]; ++row) {
                 double* value = rates.table.data() + std::size_t(row) * angles + a;
@@ -158,22 +215,42 @@ void tabulate(const Setting& s, const IonArrivals& ions, SurfaceStep& step) {
     });
 }
 
+template <class Rates>
+void put(const Rates& rates, int e, CauseFields& fields) {
+    for (std::size_t c = 0; c < fields.size(); ++c)
+        fields[c][e] = rates[c];
+}
+
 void respond_everywhere(const Setting& s, const IonArrivals& ions,
                         const std::vector<std::vector<std::vector<double>>>& batch_flux,
-                        SurfaceStep& step) {
+                        SurfaceStep& step, SurfaceDetail* detail) {
     const std::size_t n = s.surface.size();
     step.response.resize(n);
     step.growth_material.assign(n, -1);
     step.rate_batch.assign(batches, std::vector<double>(n, 0));
+    const std::size_t supplies = ion_paths + s.mechanism.neutrals.size();
+    step.cause.assign(cause_count, std::vector<double>(n, 0));
+    step.supply.assign(supplies, std::vector<double>(n, 0));
+    if (detail) detail->cause_batch.assign(batches, step.cause);
     for_elements(n, [&](int e) {
         const int material = s.outermost(e);
         const auto neutrals = at_element(step.neutral, e);
         const SurfaceResponse r = s.respond_at(material, ions.at(e, -1), neutrals.data());
         step.response[e] = r;
         if (r.rate < 0) step.growth_material[e] = r.grown_material;
+        const std::size_t paths = std::size_t(e) * ion_paths * ions.tallies;
+        put(cause_rates(s.mechanism, material, r, &ions.by_path[paths]), e, step.cause);
+        put(supply_rates(s.mechanism, material,
+                         {ions.at(e, -1), neutrals.data(), s.sources.wafer_temperature_k},
+                         &ions.by_path[paths]),
+            e, step.supply);
         for (int b = 0; b < batches; ++b) {
             const auto of_batch = at_element(batch_flux[b], e);
-            step.rate_batch[b][e] = s.respond_at(material, ions.at(e, b), of_batch.data()).rate;
+            const SurfaceResponse one = s.respond_at(material, ions.at(e, b), of_batch.data());
+            step.rate_batch[b][e] = one.rate;
+            if (detail)
+                put(cause_rates(s.mechanism, material, one, &ions.by_path_batch[b][paths]), e,
+                    detail->cause_batch[b]);
         }
     });
 }
@@ -191,7 +268,7 @@ SurfaceStep solve_surface(const geometry::Domain& domain, const geometry::Surfac
     for (std::size_t e = 0; e < n; ++e)
         RILLE_CHECK(reach.first[e] < reach.first[e + 1], "at least one material in reach");
     const Setting setting{domain, surface, caster, reach, mechanism, sources, sampling};
-    const IonArrivals ions = gather_ions(setting, reflection, previous);
+    IonArrivals ions = gather_ions(setting, reflection, previous);
     CoupledArrivals neutrals = gather_neutrals(setting, ions, previous);
 
     SurfaceStep step;
@@ -203,8 +280,22 @@ SurfaceStep solve_surface(const geometry::Domain& domain, const geometry::Surfac
     for (std::size_t i = 0; i < sources.ions.size(); ++i)
         for (std::size_t e = 0; e < n; ++e)
             step.ion_flux[i][e] = ions.direct->flux(int(i), int(e));
-    respond_everywhere(setting, ions, neutrals.batch_flux, step);
+    step.fast_neutral_flux.resize(sources.ions.size());
+    for (std::size_t f = 0; f < sources.fast_neutrals.size(); ++f)
+        for (std::size_t e = 0; e < n; ++e)
+            step.fast_neutral_flux[sources.fast_neutrals[f].ion].push_back(
+                ions.direct->flux(int(sources.ions.size() + f), int(e)));
+    std::shared_ptr<SurfaceDetail> detail;
+    if (sampling.detailed) detail = std::make_shared<SurfaceDetail>();
+    respond_everywhere(setting, ions, neutrals.batch_flux, step, detail.get());
     tabulate(setting, ions, step);
+    if (detail) {
+        detail->tallies = ions.tallies;
+        detail->by_path = std::move(ions.by_path);
+        detail->by_path_batch = std::move(ions.by_path_batch);
+        detail->neutral_batch = std::move(neutrals.batch_flux);
+        step.detail = std::move(detail);
+    }
     return step;
 }
 

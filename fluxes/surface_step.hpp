@@ -1,6 +1,7 @@
 // SPDX-License-Identifier: Apache-2.0
 #pragma once
 
+#include "fluxes/causes.hpp"
 #include "fluxes/exchange.hpp"
 #include "fluxes/ion_tables.hpp"
 #include "fluxes/ions.hpp"
@@ -18,11 +19,18 @@ namespace rille::fluxes {
 
 class IonTables;
 
+/// Fast neutrals that an ion species left behind in the sheath: they act by its tallies.
+struct FastNeutrals {
+    int ion = 0; ///< index into Mechanism::ions
+    IonSource source;
+};
+
 /// What the plasma sends and how finely it is followed.
 struct Sources {
     std::vector<IonSource> ions;         ///< in the order of Mechanism::ions
     std::vector<NeutralSource> neutrals; ///< in the order of Mechanism::neutrals
     double wafer_temperature_k = 300;
+    std::vector<FastNeutrals> fast_neutrals;
 };
 struct Sampling {
     int rays_per_element = 64;
@@ -30,6 +38,7 @@ struct Sampling {
     int ion_directions = 64;
     std::uint64_t seed = 1;
     std::uint64_t refresh = 0;
+    bool detailed = false; ///< SurfaceStep::detail is filled
 };
 
 /// Materials that a step may meet at each element, outermost first: reach[first[e]..first[e + 1]).
@@ -38,12 +47,27 @@ struct MaterialsInReach {
     std::vector<int> material;
 };
 
+/// What lies behind a step, path by path and batch by batch, for the asking.
+struct SurfaceDetail {
+    int tallies = 0;
+    /// [(element * ion_paths + path) * tallies + m] [nm^-2 s^-1], at the element's normal.
+    std::vector<double> by_path;
+    std::vector<std::vector<double>> by_path_batch;              ///< [batch]: the same of one batch
+    std::vector<std::vector<std::vector<double>>> neutral_batch; ///< [batch][species][element]
+    std::vector<CauseFields> cause_batch;                        ///< [batch][cause][element]
+};
+
 /// Everything about one surface at one instant. Vectors over elements unless said otherwise.
 struct SurfaceStep {
     geometry::NormalRates rates;
     std::vector<SurfaceResponse> response; ///< of the outermost material, at the element's normal
     std::vector<std::vector<double>> neutral;  ///< [species][element] impinging flux [nm^-2 s^-1]
     std::vector<std::vector<double>> ion_flux; ///< [species][element] direct, [nm^-2 s^-1]
+    /// [species][element] direct fast neutrals of that ion; empty for an ion without any.
+    std::vector<std::vector<double>> fast_neutral_flux;
+    CauseFields cause;  ///< parts of the rate of the outermost material: cause_rates()
+    CauseFields supply; ///< supply_rates() of the same: paths of ions, then neutral species
+    std::shared_ptr<const SurfaceDetail> detail; ///< null unless Sampling::detailed
     /// rate_batch[b][e]: the rate had only batch b been used; their spread is the sampling error.
     std::vector<std::vector<double>> rate_batch;
     std::vector<int> growth_material; ///< film material that grows on the element, or -1

@@ -55,6 +55,7 @@ struct EnergyYield {
     double energy;
 
     double operator()(const ConstantLaw& law) const { return law.value; }
+    double operator()(const LinearLaw& law) const { return law.per_ev * energy; }
     double operator()(const SquareRootLaw& law) const {
         if (energy <= law.threshold_ev) return 0.0;
         return law.amplitude * (std::sqrt(energy) - std::sqrt(law.threshold_ev));
@@ -88,6 +89,7 @@ struct Stretched {
     double atoms;
 
     EnergyLaw operator()(ConstantLaw law) const { return law; }
+    EnergyLaw operator()(LinearLaw law) const { return LinearLaw{law.per_ev / atoms}; }
     EnergyLaw operator()(SquareRootLaw law) const {
         law.amplitude /= std::sqrt(atoms);
         law.threshold_ev *= atoms;

@@ -30,8 +30,13 @@ struct EcksteinLaw {
 struct ConstantLaw {
     double value = 0;
 };
-using EnergyLaw =
-    std::variant<SquareRootLaw, YamamuraTawaraLaw, BohdanskyLaw, EcksteinLaw, ConstantLaw>;
+/// In proportion to the energy, without threshold: with a flat angular factor it counts the energy
+/// that ions bring.
+struct LinearLaw {
+    double per_ev = 0; ///< [1/eV]
+};
+using EnergyLaw = std::variant<SquareRootLaw, YamamuraTawaraLaw, BohdanskyLaw, EcksteinLaw,
+                               ConstantLaw, LinearLaw>;
 
 /// 1 at every angle.
 struct FlatAngle {};

@@ -28,14 +28,18 @@ public:
     }
 
     void run() {
-        for (SurfaceField* f : task_.fields) {
-            std::vector<double> now = means(f->value);
-            if (f->carry == Carry::per_area) conserve(f->value, now);
-            f->value = std::move(now);
-        }
+        std::vector<Values> old, now;
+        for (SurfaceField* f : task_.fields)
+            old.push_back(std::move(f->value));
+        means(old, now);
+        conserve(old, now);
+        for (std::size_t i = 0; i < now.size(); ++i)
+            task_.fields[i]->value = std::move(now[i]);
     }
 
 private:
+    using Values = std::vector<double>;
+
     static double mean_size(const Surface& s) {
         double sum = 0;
         for (double a : s.area)
@@ -95,54 +99,84 @@ private:
             if (single_[j] >= 0) share_[single_[j]] += to_.area[j];
     }
 
-    std::vector<double> means(const std::vector<double>& old) const {
-        std::vector<double> now(to_.size());
+    /// All fields in one go: looking for neighbours takes longer than summing over them.
+    void means(const std::vector<Values>& old, std::vector<Values>& now) const {
+        now.assign(old.size(), Values(to_.size()));
         over_ranges(to_.size(), grain, [&](std::size_t first, std::size_t last) {
+            Values sums(old.size());
             for (std::size_t j = first; j < last; ++j) {
                 if (single_[j] >= 0) {
-                    now[j] = old[single_[j]];
+                    for (std::size_t f = 0; f < old.size(); ++f)
+                        now[f][j] = old[f][single_[j]];
                     continue;
                 }
-                double sum = 0;
+                std::fill(sums.begin(), sums.end(), 0.0);
                 old_bins_.near(to_.centre[j], narrow * size_, [&](int e, const Vec3& d) {
-                    sum += weight(e, static_cast<int>(j), d, narrow) * old[e];
+                    const double w = weight(e, static_cast<int>(j), d, narrow);
+                    for (std::size_t f = 0; f < old.size(); ++f)
+                        sums[f] += w * old[f][e];
                 });
-                now[j] = sum / total_[j];
+                for (std::size_t f = 0; f < old.size(); ++f)
+                    now[f][j] = sums[f] / total_[j];
             }
         });
-        return now;
     }
 
-    void conserve(const std::vector<double>& old, std::vector<double>& now) const {
-        std::vector<double> excess(from_.size()), scale(from_.size(), 0);
+    /// Of every per-area field. What is spread goes by the size of what lies there, so that it may
+    /// count less than 0.
+    void conserve(const std::vector<Values>& old, std::vector<Values>& now) const {
+        std::vector<std::size_t> amounts;
+        for (std::size_t f = 0; f < old.size(); ++f)
+            if (task_.fields[f]->carry == Carry::per_area) amounts.push_back(f);
+        if (amounts.empty()) return;
+        const std::size_t count = amounts.size();
+        std::vector<Values> excess(count, Values(from_.size())), scale = excess;
         over_ranges(from_.size(), grain, [&](std::size_t first, std::size_t last) {
+            Values sums(count);
             for (std::size_t e = first; e < last; ++e) {
-                excess[e] = old[e] * (from_.area[e] - share_[e]);
-                if (excess[e] == 0) continue;
-                double sum = 0;
+                std::fill(sums.begin(), sums.end(), 0.0);
+                bool any = false;
+                for (std::size_t a = 0; a < count; ++a) {
+                    excess[a][e] = old[amounts[a]][e] * (from_.area[e] - share_[e]);
+                    any = any || excess[a][e] != 0;
+                }
+                if (!any) continue;
                 new_bins_.near(foot_[e], wide * size_, [&](int j, const Vec3& d) {
-                    sum += weight(static_cast<int>(e), j, d, wide) * to_.area[j] * now[j];
+                    const double w = weight(static_cast<int>(e), j, d, wide) * to_.area[j];
+                    for (std::size_t a = 0; a < count; ++a)
+                        sums[a] += w * std::fabs(now[amounts[a]][j]);
                 });
-                scale[e] = sum > 0 ? excess[e] / sum : 0;
+                for (std::size_t a = 0; a < count; ++a)
+                    scale[a][e] = sums[a] > 0 ? excess[a][e] / sums[a] : 0;
             }
         });
-        std::vector<double> next = now;
+        std::vector<Values> next;
+        for (const std::size_t f : amounts)
+            next.push_back(now[f]);
         over_ranges(to_.size(), grain, [&](std::size_t first, std::size_t last) {
+            Values sums(count);
             for (std::size_t j = first; j < last; ++j) {
-                double sum = 0;
+                std::fill(sums.begin(), sums.end(), 0.0);
                 old_bins_.near(to_.centre[j], wide * size_, [&](int e, const Vec3& d) {
-                    sum += scale[e] * weight(e, static_cast<int>(j), d, wide);
+                    const double w = weight(e, static_cast<int>(j), d, wide);
+                    for (std::size_t a = 0; a < count; ++a)
+                        sums[a] += scale[a][e] * w;
                 });
-                if (sum != 0) next[j] = now[j] + sum * now[j];
+                for (std::size_t a = 0; a < count; ++a) {
+                    const double here = now[amounts[a]][j];
+                    if (sums[a] != 0) next[a][j] = here + sums[a] * std::fabs(here);
+                }
             }
         });
-        for (std::size_t e = 0; e < from_.size(); ++e) // nothing near to share it with
-            if (excess[e] != 0 && scale[e] == 0) {
-                const int j = new_bins_.nearest(foot_[e]);
-                next[j] += excess[e] / to_.area[j];
-            }
-        keep_positive(old, next);
-        now = std::move(next);
+        for (std::size_t a = 0; a < count; ++a) {
+            for (std::size_t e = 0; e < from_.size(); ++e) // nothing near to share it with
+                if (excess[a][e] != 0 && scale[a][e] == 0) {
+                    const int j = new_bins_.nearest(foot_[e]);
+                    next[a][j] += excess[a][e] / to_.area[j];
+                }
+            keep_positive(old[amounts[a]], next[a]);
+            now[amounts[a]] = std::move(next[a]);
+        }
     }
 
     /// Overshoots below zero are rare; lifting them is paid for by all in proportion.

@@ -49,7 +49,7 @@ TEST_CASE("run output: the folder is valid after every call, and complete at the
         CHECK(std::filesystem::exists(scratch / (std::string("run/") + name)));
         CHECK(record["files"].dump().find(name) != std::string::npos);
     }
-    CHECK(record["files"].size() == 11 + 3);
+    CHECK(record["files"].size() == 14 + 3);
     const auto json = nlohmann::json::parse(read_file(scratch / "run/metrics.json"));
     CHECK(json["metrics"].size() == metrics.metrics.size());
     for (const auto& metric : json["metrics"]) {
@@ -73,7 +73,8 @@ TEST_CASE("run output: the same run writes the same bytes") {
         output.finish(sample_result(c, 0.8, 60));
     }
     for (const char* name : {output_names::profile, output_names::history, output_names::metrics,
-                             output_names::series, output_names::picture_svg})
+                             output_names::series, output_names::picture_svg, output_names::causes,
+                             output_names::causes_svg})
         CHECK(read_file(scratch / (std::string("a/") + name)) ==
               read_file(scratch / (std::string("b/") + name)));
 }
