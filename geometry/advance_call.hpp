@@ -73,6 +73,7 @@ private:
                          : slopes_3d(band_, phi, c, 1 / h_, unseen, limiter);
     }
     void find_even_cells();
+    bool may_rest() const;
     double change(const Slopes&, const RowPair&, const RateWindow&, bool fan, Speed&) const;
     void blend(RowPair&, const BetweenCentres&) const;
     template <class Take>
@@ -101,18 +102,26 @@ private:
     AdvanceReport report_;
     double moved_since_refresh_ = 0; ///< [cells]
     double time_of_refresh_ = 0;     ///< [s]
-    std::vector<Plate> plates_;      ///< the elements where they were at the last refresh
-    std::vector<int> element_;       ///< of each cell, -1: none
-    std::vector<RowPair> row_;
+    RawVector<Plate> plates_;        ///< the elements where they were at the last refresh
+    RawVector<int> element_;         ///< of each cell, -1: none
+    RawVector<RowPair> row_;
     /// extruded: whether the nearest point is a sharp corner; full: see find_even_cells.
-    std::vector<char> fan_;
-    std::vector<double> slope_, next_; ///< dphi/dt at the first stage; phi after it
+    RawVector<char> fan_;
+    RawVector<double> slope_, next_; ///< dphi/dt at the first stage; phi after it
     std::vector<LayeredCell> layered_;
     std::vector<int> layered_elements_;
-    std::vector<Tilt> element_tilt_;
-    std::vector<char> clear_; ///< no interface or grown film within reach of an element's cells
-    std::vector<RateWindow> element_window_;      ///< of the material below it, about its normal
-    std::vector<double> element_rate_, own_rate_; ///< own: before films are peeled
+    RawVector<Tilt> element_tilt_;
+    /// What cells ask about their element, together in memory.
+    struct Below {
+        double z;   ///< [nm] of its centre
+        int row;    ///< of the material below it
+        bool clear; ///< no interface or grown film within reach of its cells
+    };
+    RawVector<Below> below_;
+    bool something_rests_ = false;         ///< see resting_sides
+    bool something_constant_ = false;      ///< some element has a rate without regard to the normal
+    RawVector<RateWindow> element_window_; ///< of the material below it, about its normal
+    RawVector<double> element_rate_, own_rate_; ///< own: before films are peeled
 };
 
 } // namespace rille::geometry

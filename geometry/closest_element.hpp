@@ -19,8 +19,8 @@ Vec3 nearest_point(const Domain&, const Plate&, const Vec3& p);
 
 /// For every cell of a band the nearest element of a surface.
 struct ClosestElements {
-    std::vector<Plate> plates;
-    std::vector<int> element; ///< -1 where no element lies within reach
+    RawVector<Plate> plates;
+    RawVector<int> element; ///< -1 where no element lies within reach
 };
 
 /// Nearest point to p on element e, exact for segments, triangles and planar quads.

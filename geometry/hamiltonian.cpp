@@ -12,7 +12,6 @@ namespace rille::geometry {
 namespace {
 
 constexpr double pi = 3.14159265358979323846;
-constexpr double narrow = 0.05; ///< [rad] below it a box of slopes counts as a small cone
 
 Tilt exact_tilt(double horizontal, double vertical) {
     const double length = std::sqrt(horizontal * horizontal + vertical * vertical);
@@ -25,14 +24,6 @@ Tilt exact_tilt(double horizontal, double vertical) {
 double turn_of(double horizontal, double vertical) {
     const double sum = horizontal + std::fabs(vertical);
     return vertical < 0 ? 1 - vertical / sum : horizontal / sum;
-}
-
-constexpr int turn_bins = 128; ///< none wider than 1/32 rad
-
-/// arcsin(x) by its series, exact to rounding for |x| < 1/32.
-double short_arcsine(double x) {
-    const double q = x * x;
-    return x + x * q * (1.0 / 6 + q * (3.0 / 40 + q * (15.0 / 336 + q * (105.0 / 3456))));
 }
 
 } // namespace
@@ -110,6 +101,34 @@ Tilt RateTables::tilt(double horizontal, double vertical, double& length) const 
         t.sine = std::copysign(t.sine, horizontal);
     }
     return t;
+}
+
+void RateTables::look_up_marks(FluxLanes& lanes, int used) const {
+    for (int n = 0; n < used; ++n) {
+        const Tilt& mark = marks_[lanes.turn_bin[n]];
+        lanes.mark_angle[n] = mark.angle;
+        lanes.mark_sine[n] = mark.sine;
+        lanes.mark_cosine[n] = mark.cosine;
+    }
+}
+
+bool RateTables::look_up_nodes(FluxLanes& lanes, int n, const RateWindow& window) const {
+    const int s = segment(lanes.angle[n]), last = static_cast<int>(rates_.angles.size()) - 2;
+    const bool held = s > window.first && s + 2 < window.first + RateWindow::size;
+    if (!held || s < 1 || s >= last) return false;
+    const double *angle = rates_.angles.data() + s - 1,
+                 *value = window.value + (s - 1 - window.first);
+    for (int k = 0; k < 4; ++k) {
+        lanes.node_angle[k][n] = angle[k];
+        lanes.value[k][n] = value[k];
+    }
+    for (int k = 0; k < 3; ++k)
+        lanes.inverse_width[k][n] = inverse_width_[s - 1 + k];
+    for (int k = 0; k < 2; ++k) {
+        lanes.node_sine[k][n] = sine_[s + k];
+        lanes.node_cosine[k][n] = cosine_[s + k];
+    }
+    return true;
 }
 
 RateWindow RateTables::window(int row, double angle) const {
@@ -200,13 +219,6 @@ struct Box {
     double z_low, z_high;
 };
 
-double least_magnitude(double a, double b) {
-    return a * b <= 0 ? 0 : std::min(std::fabs(a), std::fabs(b));
-}
-double most_magnitude(double a, double b) {
-    return std::max(std::fabs(a), std::fabs(b));
-}
-
 /// `low` and `high` are the least and the largest magnitude along each axis.
 Box box_of(bool extruded, const Slopes& s, const double* low, const double* high) {
     Box b;
@@ -235,7 +247,7 @@ WaveSpeed over_box(const RateTables& tables, int row, bool extruded, const Box& 
     const double square = wide * wide + high * high;
     const double h = 0.5 * (b.h_low + b.h_high), z = 0.5 * (b.z_low + b.z_high);
     const double middle = h * h + z * z;
-    if (square < narrow * narrow * middle) {
+    if (square < narrow_box * narrow_box * middle) {
         // The mean slopes lie in the box, so a cone about them as wide as its diagonal holds it.
         const double spread = 1.1 * std::sqrt(square / middle);
         const Tilt low = turned(mean, -spread), up = turned(mean, spread);
@@ -316,36 +328,18 @@ double upwind_steepness(const Slopes& s, bool recedes, double& waves) {
 
 double lax_friedrichs(const RateTables& tables, const RowPair& rows, const RateWindow& window,
                       bool extruded, const Slopes& s, Speed& speed) {
-    FluxCell cell;
-    cell.rows = &rows;
-    cell.window = &window;
-    cell.slopes = s;
-    lax_friedrichs(tables, extruded, &cell, 1);
-    speed = cell.speed;
-    return cell.change;
-}
-
-void lax_friedrichs(const RateTables& tables, bool extruded, FluxCell* cells, int count) {
-    for (int n = 0; n < count; ++n) {
-        FluxCell& c = cells[n];
-        const double gx = c.slopes.mean(0), gy = c.slopes.mean(1);
-        const double across = extruded ? gx : std::sqrt(gx * gx + gy * gy);
-        c.mean = tables.tilt(across, c.slopes.mean(2), c.length);
-    }
-    for (int n = 0; n < count; ++n)
-        tables.find_segment(cells[n].mean);
-    for (int n = 0; n < count; ++n) {
-        FluxCell& c = cells[n];
-        const Slopes& s = c.slopes;
-        c.speed.rate = tables.rate(*c.rows, c.mean, *c.window);
-        const std::array<double, 3> a =
-            dissipation(tables, *c.rows, *c.window, extruded, s, c.mean);
-        c.speed.waves = a[0] + a[1] + a[2];
-        c.speed.smooth = smooth(s);
-        c.change = c.speed.rate * c.length;
-        for (int axis = 0; axis < 3; ++axis)
-            c.change += 0.5 * a[axis] * (s.plus[axis] - s.minus[axis]);
-    }
+    const double gx = s.mean(0), gy = s.mean(1);
+    double length = 0;
+    Tilt mean = tables.tilt(extruded ? gx : std::sqrt(gx * gx + gy * gy), s.mean(2), length);
+    tables.find_segment(mean);
+    speed.rate = tables.rate(rows, mean, window);
+    const std::array<double, 3> a = dissipation(tables, rows, window, extruded, s, mean);
+    speed.waves = a[0] + a[1] + a[2];
+    speed.smooth = smooth(s);
+    double change = speed.rate * length;
+    for (int axis = 0; axis < 3; ++axis)
+        change += 0.5 * a[axis] * (s.plus[axis] - s.minus[axis]);
+    return change;
 }
 
 } // namespace rille::geometry

@@ -45,7 +45,7 @@ double redistance(Band& band, const Surface& surface, const ClosestElements& clo
     });
     if (changed.empty()) return 0;
 
-    const std::vector<double> old = band.phi;
+    const RawVector<double> old = band.phi;
     std::vector<char> flag(band.size(), 0);
     for (const int c : changed) {
         flag[c] = 1;
