@@ -29,15 +29,15 @@ double Advance::change(const Slopes& s, const RowPair& row, const RateWindow& wi
     if (tables_.constant(row, window)) {
         speed.rate = tables_.rate(row, 0);
         double steep = upwind_steepness(s, speed.rate > 0, speed.waves);
-        if (fan && !extruded_) { // there a corner may meet a smooth face
+        if (fan && !planar_) { // there a corner may meet a smooth face
             double waves;
             const double down = upwind_steepness(s, speed.rate <= 0, waves);
             if ((steep - 1) * (down - 1) <= 0 && std::fabs(steep - 1) > unresolved) steep = 1;
         }
         speed.waves *= std::fabs(speed.rate);
-        return fan && extruded_ ? speed.rate : speed.rate * steep;
+        return fan && planar_ ? speed.rate : speed.rate * steep;
     }
-    return lax_friedrichs(tables_, row, window, extruded_, s, speed);
+    return lax_friedrichs(tables_, row, window, planar_, s, speed);
 }
 
 /// Calls take(cell, dphi/dt, speed) for the cells of a range that move, but for layered ones.
@@ -46,7 +46,7 @@ void Advance::sweep(const double* phi, std::size_t begin, std::size_t end, const
     std::array<FluxCell, 32> cells;
     std::size_t count = 0;
     const auto finish = [&] {
-        lax_friedrichs(tables_, extruded_, cells.data(), static_cast<int>(count));
+        lax_friedrichs(tables_, planar_, cells.data(), static_cast<int>(count));
         for (std::size_t n = 0; n < count; ++n)
             take(cells[n].cell, cells[n].change, cells[n].speed);
         count = 0;
@@ -77,7 +77,7 @@ void Advance::sweep(const double* phi, std::size_t begin, std::size_t end, const
 /// The same at the mean rate over `dt` through layers: each acts for its share of the time.
 double Advance::layered_change(const Slopes& s, const Layers& layers, bool fan, double dt) const {
     std::array<double, Layers::capacity> share;
-    const double angle = tilt_of(extruded_, s.mean(0), s.mean(1), s.mean(2)).angle;
+    const double angle = tilt_of(planar_, s.mean(0), s.mean(1), s.mean(2)).angle;
     walk(tables_, layers, angle, dt, share);
     double sum = 0;
     for (int k = 0; k < layers.count; ++k) {

@@ -56,7 +56,7 @@ Foot Advance::foot(std::size_t c) const {
 /// full: whether phi of a cell is the time at which the front passes it, but for the rate: where
 /// the rate does not depend on the normal and no neighbour has a faster one to spread from.
 void Advance::find_even_cells() {
-    if (extruded_) return;
+    if (planar_) return;
     std::vector<double> rate(band_.size(), 0.0); // NaN where it depends on the normal
     for_ranges(band_.size(), [&](std::size_t begin, std::size_t end) {
         for (std::size_t c = begin; c < end; ++c) {
@@ -88,7 +88,7 @@ void Advance::classify_cells() {
             if (e < 0) continue;
             row_[c].row =
                 meets_layers(c) || resting_sides(c) ? layered_row : element_window_[e].row;
-            if (!extruded_) continue;
+            if (!planar_) continue;
             blend(row_[c], place_of(c));
             fan_[c] = in_fan(c);
         }
@@ -165,7 +165,7 @@ void Advance::find_wall(LayeredCell& at) const {
         if (band_.domain.sides == Sides::periodic) {
             const double wx = band_.domain.width_x(), wy = band_.domain.width_y();
             d.x -= wx * std::round(d.x / wx);
-            if (!extruded_) d.y -= wy * std::round(d.y / wy);
+            if (!planar_) d.y -= wy * std::round(d.y / wy);
         }
         return d;
     };
@@ -195,7 +195,7 @@ void Advance::classify_elements() {
     for_ranges(surface_.size(), [&](std::size_t begin, std::size_t end) {
         for (std::size_t e = begin; e < end; ++e) {
             const Vec3& n = surface_.normal[e];
-            element_tilt_[e] = tilt_of(extruded_, n.x, n.y, n.z);
+            element_tilt_[e] = tilt_of(planar_, n.x, n.y, n.z);
         }
         // Rows of the tables come from far away; apart from the tilts, many are asked for at once.
         for (std::size_t e = begin; e < end; ++e) {

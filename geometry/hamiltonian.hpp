@@ -16,7 +16,7 @@ struct Tilt {
     int segment = -1; ///< of the rate tables, where the angle lies or near it; -1: not known
 };
 /// extruded: angle atan2(g.x, g.z); full: angle between g and +z.
-Tilt tilt_of(bool extruded, double gx, double gy, double gz);
+Tilt tilt_of(bool planar, double gx, double gy, double gz);
 
 /// Largest |dH/dp| over a range of tilts for H(p) = R(tilt) |p|: along the horizontal direction of
 /// the normal and along z [nm/s].
@@ -126,7 +126,7 @@ struct Speed {
 
 /// dphi/dt [nm/s] of a cell by local Lax-Friedrichs: R(n) |grad phi| at the mean slopes plus, along
 /// each axis, half the largest |dH/dp| over the box of slopes times their difference.
-double lax_friedrichs(const RateTables&, const RowPair&, const RateWindow&, bool extruded,
+double lax_friedrichs(const RateTables&, const RowPair&, const RateWindow&, bool planar,
                       const Slopes&, Speed&);
 
 /// A cell with what `lax_friedrichs` is given and what it returns.
@@ -142,6 +142,6 @@ struct FluxCell {
 };
 /// The same for several cells, step by step: one cell is a long chain of operations that wait for
 /// each other, and the chains of several run side by side.
-void lax_friedrichs(const RateTables&, bool extruded, FluxCell* cells, int count);
+void lax_friedrichs(const RateTables&, bool planar, FluxCell* cells, int count);
 
 } // namespace rille::geometry

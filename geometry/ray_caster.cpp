@@ -43,7 +43,7 @@ struct RayCaster::Impl {
 RayCaster::RayCaster(const Domain& domain, const Surface& surface, double z_open)
     : impl_(std::make_unique<Impl>()) {
     impl_->z_open = z_open;
-    if (domain.extruded())
+    if (domain.planar_contour())
         impl_->segments.emplace(domain, surface, z_open);
     else
         impl_->quads = std::make_unique<QuadCaster>(domain, surface, z_open);
