@@ -15,7 +15,7 @@ struct Tilt {
     double angle = 0, sine = 0, cosine = 1;
     int segment = -1; ///< of the rate tables, where the angle lies or near it; -1: not known
 };
-/// extruded: angle atan2(g.x, g.z); full: angle between g and +z.
+/// planar contour: angle atan2(g.x, g.z); full: angle between g and +z.
 Tilt tilt_of(bool planar, double gx, double gy, double gz);
 
 /// Largest |dH/dp| over a range of tilts for H(p) = R(tilt) |p|: along the horizontal direction of
