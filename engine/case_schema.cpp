@@ -150,11 +150,11 @@ std::vector<Rule> later_rules() {
 }
 
 Rule make_case_rules() {
-    Rule symmetry =
-        word_rule("symmetry", {"extruded", "full"},
-                  "extruded: trenches and lines; full: anything that repeats in x and y")
+    const Rule symmetry =
+        word_rule("symmetry", {"extruded", "revolved", "full"},
+                  "extruded: trenches and lines; revolved: one round hole about the axis of a "
+                  "round cell; full: anything that repeats in x and y")
             .required();
-    symmetry.later_words = {{"revolved", "round holes in r and z come later; use full"}};
     Rule targets = dictionary_rule(
         "targets",
         sentence_rule("", "at least X, at most X, or X to Y",
@@ -166,7 +166,8 @@ Rule make_case_rules() {
         {integer_rule("format", {1, 1}, "version of this form").required(),
          text_rule("title", "one line that says what the case is").by_default("untitled"), symmetry,
          quantities_rule("pitch", D::length, above_zero(),
-                         "width of the simulated period; full: one length or [x, y]")
+                         "width of the simulated period; revolved: diameter of the cell; full: one "
+                         "length or [x, y]")
              .required(),
          word_rule("sides", {"mirror", "periodic"}, "what lies beyond the period")
              .by_default("mirror"),

@@ -31,14 +31,16 @@ void build_cells(const Entry& pitch, const Entry& spacing, Case& result, Problem
     const double width_y = pitch.numbers.size() > 1 ? pitch.numbers[1] : width_x;
     const double asked = spacing.number;
     result.spacing_asked = asked;
-    if (asked > width_x || (!domain.extruded() && asked > width_y)) {
+    if (asked > width_x || (!domain.planar_contour() && asked > width_y)) {
         problems.add(
             spacing.at, spacing.path,
             fmt::format("{} is wider than the pitch {}", quoted(spacing.text), pitch.text));
         return;
     }
-    const int cells = domain.extruded() ? static_cast<int>(std::lround(width_x / asked))
-                                        : common_cells(width_x, width_y, asked);
+    const double across = domain.revolved() ? 0.5 * width_x : width_x;
+    const int cells = domain.planar_contour()
+                          ? std::max(1, static_cast<int>(std::lround(across / asked)))
+                          : common_cells(width_x, width_y, asked);
     if (cells == 0) {
         const double rows = std::max(1.0, std::round(width_y / asked));
         problems.add(pitch.at, pitch.path,
@@ -50,13 +52,14 @@ void build_cells(const Entry& pitch, const Entry& spacing, Case& result, Problem
         return;
     }
     domain.cells_x = cells;
-    domain.spacing = width_x / cells;
+    domain.spacing = across / cells;
     domain.cells_y =
-        domain.extruded() ? 1 : static_cast<int>(std::lround(width_y / domain.spacing));
+        domain.planar_contour() ? 1 : static_cast<int>(std::lround(width_y / domain.spacing));
     if (std::abs(domain.spacing - asked) > 1e-9 * asked)
         result.warnings.push_back(fmt::format("spacing {:.6g} nm instead of {}: {} cells fill the "
-                                              "pitch",
-                                              domain.spacing, spacing.text, cells));
+                                              "{}",
+                                              domain.spacing, spacing.text, cells,
+                                              domain.revolved() ? "radius" : "pitch"));
 }
 
 struct StackBuilder {
@@ -136,15 +139,21 @@ void build_domain(const Entry& root, Case& result, Problems& problems) {
     result.title = root["title"].text;
     const Entry& symmetry = root["symmetry"];
     const Entry& pitch = root["pitch"];
-    result.domain.symmetry =
-        symmetry.text == "full" ? geometry::Symmetry::full : geometry::Symmetry::extruded;
+    result.domain.symmetry = symmetry.text == "full"       ? geometry::Symmetry::full
+                             : symmetry.text == "revolved" ? geometry::Symmetry::revolved
+                                                           : geometry::Symmetry::extruded;
     result.domain.sides =
         root["sides"].text == "periodic" ? geometry::Sides::periodic : geometry::Sides::mirror;
     if (!symmetry.is_good || !pitch.is_good) return;
-    if (result.domain.extruded() && pitch.numbers.size() > 1) {
-        problems.add(pitch.at, pitch.path, "extruded has one pitch; [x, y] is for symmetry: full");
+    if (result.domain.planar_contour() && pitch.numbers.size() > 1) {
+        problems.add(pitch.at, pitch.path,
+                     fmt::format("{} has one pitch; [x, y] is for symmetry: full", symmetry.text));
         return;
     }
+    if (result.domain.revolved() && result.domain.sides == geometry::Sides::periodic)
+        problems.add(root["sides"].at, root["sides"].path,
+                     "a round cell does not repeat: revolved has sides: mirror; holes side by "
+                     "side need symmetry: full");
     if (root["spacing"].is_good) build_cells(pitch, root["spacing"], result, problems);
 }
 

@@ -14,9 +14,9 @@ namespace rille::fluxes {
 /// The exchange operator of neutrals in free-molecular flow with diffuse re-emission: traced once,
 /// solved for many species. Arrivals follow from arrival = d + A (1 - sticking) arrival, fluxes
 /// relative to the open one. Row sum of A plus d is 1 by construction, so zero sticking gives flux
-/// 1 everywhere. d: extruded exact from the visible sky, full from rays by the cosine law combined
-/// with rays aimed at the opening (multiple importance sampling, unbiased). The rest of a row is
-/// shared equally by the elements that the cosine-law rays of the element hit.
+/// 1 everywhere. d: extruded exact from the visible sky, full and revolved from rays by the cosine
+/// law combined with rays aimed at the opening (multiple importance sampling, unbiased). The rest
+/// of a row is shared equally by the elements that the cosine-law rays of the element hit.
 ///
 /// The batches are independent of each other: each has its own scramble of launch points and
 /// directions. Elements without any path to the open (closed voids) receive nothing.

@@ -46,6 +46,7 @@ std::string openings_text(const Case& c) {
     if (shown < c.mask.openings.size())
         text += fmt::format("; and {} more", c.mask.openings.size() - shown);
     const geometry::Domain& d = c.domain;
+    if (d.revolved()) return text + ", in a round cell " + in_nm(2 * d.width_x()) + " across";
     text += d.extruded() ? ", in a period of " + in_nm(d.width_x())
                          : ", in a period of " + in_nm(d.width_x()) + " by " + in_nm(d.width_y());
     return text + (d.sides == geometry::Sides::mirror ? ", mirrored" : ", repeated");
