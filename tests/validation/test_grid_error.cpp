@@ -1,0 +1,115 @@
+// SPDX-License-Identifier: Apache-2.0
+#include "engine/grid_search.hpp"
+#include "engine/metrics.hpp"
+#include "tests/support/run_quietly.hpp"
+
+#include <catch2/catch.hpp>
+
+#include <cmath>
+#include <map>
+
+using namespace rille;
+using namespace rille::tests;
+
+namespace {
+
+const std::vector<std::string> judged = {"depth centre", "top cd", "bottom cd", "bow cd"};
+
+/// A short etch of a trench with reflected ions, `cells` across the pitch of 80 nm.
+engine::Case etch_on(int cells, std::uint64_t seed) {
+    TrenchCase t(80, 80.0 / cells, 40, 200);
+    t.add_opening("trench", 40);
+    t.c.seed = seed;
+    t.c.ions_per_species = 4096;
+    t.set_ions(60, fluxes::IonDistribution::gaussian(100, 0.04));
+    for (const int material : {0, 1})
+        t.c.reflection[material] = fluxes::IonReflection{};
+    etch_by_ions(t, 0, {fluxes::SquareRootLaw{0.12, 10}, fluxes::PlateauCosine{78}, 1});
+    t.add_step("main", 30);
+    t.c.cd_places = {{"top", {"6 nm below film top", -6}}, {"bottom", {"22 nm deep", -22}}};
+    t.c.assess_grid_error = true;
+    return t.c;
+}
+
+engine::Metrics assessed(const engine::Case& c) {
+    engine::GridSearch search(c);
+    const std::atomic<bool> stop{false};
+    const auto main = engine::run_companions(search, {}, stop);
+    REQUIRE(main);
+    REQUIRE(main->kind == engine::GridSearch::Next::Kind::main);
+    engine::Metrics metrics = engine::measure(main->the_case, run_quietly(main->the_case).last);
+    search.assess(main->the_case, metrics);
+    return metrics;
+}
+
+/// Limit of spacing zero from spacings two and four times finer, errors taken to be linear in them.
+std::map<std::string, double> truth_of(int cells) {
+    const auto value = [](int n, const std::string& name) {
+        static std::map<int, engine::Metrics> known;
+        if (!known.count(n)) {
+            const engine::Case c = etch_on(n, 1);
+            known[n] = engine::measure(c, run_quietly(c).last);
+        }
+        return known[n].find(name)->value.value();
+    };
+    std::map<std::string, double> truth;
+    for (const std::string& name : judged)
+        truth[name] = 2 * value(4 * cells, name) - value(2 * cells, name);
+    return truth;
+}
+
+struct Score {
+    int inside = 0, all = 0;
+    double squares = 0, errors = 0, bars = 0;
+
+    void add(double error, double bar) {
+        ++all;
+        inside += std::fabs(error) <= bar;
+        squares += std::pow(error / (0.5 * bar), 2);
+        errors += error * error;
+        bars += bar;
+    }
+    double rms_pull() const { return std::sqrt(squares / all); }
+    double bar_over_error() const { return bars / all / std::sqrt(errors / all); }
+};
+
+std::map<std::string, Score> score(int seeds, const std::vector<int>& grids) {
+    const std::map<std::string, double> truth = truth_of(grids[grids.size() / 2]);
+    std::map<std::string, Score> scores;
+    for (int seed = 1; seed <= seeds; ++seed)
+        for (const int cells : grids) {
+            const engine::Metrics metrics = assessed(etch_on(cells, seed));
+            for (const std::string& name : judged) {
+                const engine::Metric& m = *metrics.find(name);
+                REQUIRE(m.grid_error);
+                scores[name].add(*m.value - truth.at(name), m.error());
+                UNSCOPED_INFO(name << " " << cells << " cells, seed " << seed << ": " << *m.value
+                                   << " +- " << m.sampling_error << " +- " << *m.grid_error
+                                   << ", truth " << truth.at(name));
+            }
+        }
+    for (const auto& [name, s] : scores)
+        WARN(name << ": " << s.inside << " of " << s.all << " inside, rms(error / sigma) "
+                  << s.rms_pull() << ", bar / rms error " << s.bar_over_error());
+    return scores;
+}
+
+} // namespace
+
+TEST_CASE("error bars hold the limit of fine grids", "[validation][grid]") {
+    for (const auto& [name, s] : score(2, {20, 21, 22})) {
+        INFO(name);
+        CHECK(s.inside == s.all);
+        CHECK(s.all == 6);
+    }
+}
+
+TEST_CASE("error bars hold the limit of fine grids in 40 runs", "[validation][grid][long]") {
+    for (const auto& [name, s] : score(8, {20, 21, 22, 23, 24})) {
+        INFO(name);
+        CHECK(s.inside >= 36);
+        CHECK(s.rms_pull() > 0.5);
+        CHECK(s.rms_pull() < 1.5);
+        CHECK(s.bar_over_error() <= 3);
+    }
+}
