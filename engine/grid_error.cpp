@@ -21,7 +21,7 @@ struct GridValue {
 /// measured length about its trend is a share of a cell.
 struct Trend {
     double limit = 0, slope = 0;
-    double scatter = 0; ///< largest deviation over the spacing
+    double scatter = 0; ///< standard deviation from the line over the spacing
 };
 
 Trend trend_of(const std::vector<GridValue>& values) {
@@ -39,7 +39,8 @@ Trend trend_of(const std::vector<GridValue>& values) {
     trend.slope = (w * whx - wh * wx) / determinant;
     trend.limit = (wx - trend.slope * wh) / w;
     for (const auto& [h, x] : values)
-        trend.scatter = std::max(trend.scatter, std::fabs(x - trend.limit - trend.slope * h) / h);
+        trend.scatter += std::pow((x - trend.limit - trend.slope * h) / h, 2);
+    trend.scatter = std::sqrt(trend.scatter / (values.size() - 2.0));
     return trend;
 }
 
@@ -71,7 +72,10 @@ void assess_grid_error(std::vector<Metric>& own, double own_spacing, bool own_co
             }
         if (values.size() < fewest_grids || coarsest < 1.2 * finest) continue;
         const Trend trend = trend_of(values);
-        metric.grid_error = std::max(std::fabs(trend.slope), trend.scatter) * own_spacing;
+        double distance = std::fabs(trend.slope) * own_spacing;
+        if (own_counts && metric.value)
+            distance = std::max(distance, std::fabs(*metric.value - trend.limit));
+        metric.grid_error = std::hypot(distance, 2 * trend.scatter * own_spacing);
     }
 }
 

@@ -21,9 +21,11 @@ struct GridRun {
 };
 
 /// A bound on the error that the grid of `own_spacing` makes in each metric, from the same case on
-/// coarser grids (about twice the spacing at several offsets, and about sqrt(2) times): the larger
-/// of the extrapolation to spacing zero, linear in the spacing, and of the largest deviation from
-/// that line, which is taken to grow with the spacing. Fills Metric::grid_error (same unit) where
+/// coarser grids (about twice the spacing at several offsets, and about sqrt(2) times). A line
+/// through the values over the spacing gives the limit of spacing zero; the error is the distance
+/// to it, or what the line falls by over the own spacing if that is more, together with twice the
+/// scatter about the line (root of the sum of squares), which is taken to grow with the spacing.
+/// Fills Metric::grid_error (same unit) where
 /// at least four grids, the own one included if `own_counts`, have the value under the same
 /// definition.
 void assess_grid_error(std::vector<Metric>& own, double own_spacing, bool own_counts,

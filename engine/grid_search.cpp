@@ -120,9 +120,10 @@ int GridSearch::finest_cells() const {
                 static_cast<int>(across * asked_.domain.width_x() / narrowest_opening(asked_)));
 }
 
-/// sqrt(2) or 2 times as many, so that earlier grids serve as companions again.
+/// By the error, taken to fall with the spacing; sqrt(2) to 4 times as many.
 int GridSearch::finer(int cells, double error) const {
-    const double factor = error > 1.5 * asked_.accuracy_cd_nm ? 2 : std::sqrt(2.0);
+    const double factor =
+        std::clamp(error / (0.8 * grid_part * asked_.accuracy_cd_nm), std::sqrt(2.0), 4.0);
     const int found = near(asked_, static_cast<int>(std::lround(factor * cells)));
     return std::min(std::max(found, cells + 1), finest_cells());
 }

@@ -68,7 +68,7 @@ TEST_CASE("the grid error of a value that is linear in the spacing", "[engine][g
     CHECK(*own[0].grid_error == Approx(0.3).epsilon(1e-9));
     CHECK(own[0].error() == Approx(std::hypot(0.3, 0.05)));
 
-    SECTION("scatter counts where it is larger than the trend") {
+    SECTION("scatter counts beside the trend") {
         companions[1].metrics[0].value = 60 + 0.3 * 1.9 + 2;
         assess_grid_error(own, 1, true, companions);
         CHECK(*own[0].grid_error > 0.5);

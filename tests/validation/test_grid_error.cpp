@@ -13,7 +13,7 @@ using namespace rille::tests;
 
 namespace {
 
-const std::vector<std::string> judged = {"depth centre", "top cd", "bottom cd", "bow cd"};
+const std::vector<std::string> judged = {"top cd", "middle cd", "bow cd"};
 
 /// A short etch of a trench with reflected ions, `cells` across the pitch of 80 nm.
 engine::Case etch_on(int cells, std::uint64_t seed) {
@@ -26,7 +26,7 @@ engine::Case etch_on(int cells, std::uint64_t seed) {
         t.c.reflection[material] = fluxes::IonReflection{};
     etch_by_ions(t, 0, {fluxes::SquareRootLaw{0.12, 10}, fluxes::PlateauCosine{78}, 1});
     t.add_step("main", 30);
-    t.c.cd_places = {{"top", {"6 nm below film top", -6}}, {"bottom", {"22 nm deep", -22}}};
+    t.c.cd_places = {{"top", {"6 nm below film top", -6}}, {"middle", {"15 nm deep", -15}}};
     t.c.assess_grid_error = true;
     return t.c;
 }
@@ -59,12 +59,13 @@ std::map<std::string, double> truth_of(int cells) {
 }
 
 struct Score {
-    int inside = 0, all = 0;
+    int inside = 0, inside_of_tenth = 0, all = 0;
     double squares = 0, errors = 0, bars = 0;
 
     void add(double error, double bar) {
         ++all;
         inside += std::fabs(error) <= bar;
+        inside_of_tenth += std::fabs(error) <= 0.1 * bar;
         squares += std::pow(error / (0.5 * bar), 2);
         errors += error * error;
         bars += bar;
@@ -74,7 +75,7 @@ struct Score {
 };
 
 std::map<std::string, Score> score(int seeds, const std::vector<int>& grids) {
-    const std::map<std::string, double> truth = truth_of(grids[grids.size() / 2]);
+    const std::map<std::string, double> truth = truth_of(32);
     std::map<std::string, Score> scores;
     for (int seed = 1; seed <= seeds; ++seed)
         for (const int cells : grids) {
@@ -83,9 +84,6 @@ std::map<std::string, Score> score(int seeds, const std::vector<int>& grids) {
                 const engine::Metric& m = *metrics.find(name);
                 REQUIRE(m.grid_error);
                 scores[name].add(*m.value - truth.at(name), m.error());
-                UNSCOPED_INFO(name << " " << cells << " cells, seed " << seed << ": " << *m.value
-                                   << " +- " << m.sampling_error << " +- " << *m.grid_error
-                                   << ", truth " << truth.at(name));
             }
         }
     for (const auto& [name, s] : scores)
@@ -96,16 +94,24 @@ std::map<std::string, Score> score(int seeds, const std::vector<int>& grids) {
 
 } // namespace
 
+// Oracle: the limit of spacing zero from grids two and four times finer.
+// Source: Richardson extrapolation (common practice, no source); definition of a standard error.
+// Tolerance: error bars are for 95 %: of 6 runs one may lie outside, bars a tenth as long must lose
+// most of them, and a bar is at most 4 times the rms error, so that it cannot pass by its length.
 TEST_CASE("error bars hold the limit of fine grids", "[validation][grid]") {
-    for (const auto& [name, s] : score(2, {20, 21, 22})) {
+    for (const auto& [name, s] : score(2, {30, 32, 34})) {
         INFO(name);
-        CHECK(s.inside == s.all);
         CHECK(s.all == 6);
+        CHECK(s.inside >= 5);
+        CHECK(s.inside_of_tenth <= 3);
+        CHECK(s.bar_over_error() <= 4);
     }
 }
 
+// The same with 8 seeds on 5 grids. At least 36 of 40 inside, rms(error / sigma) from 0.5 to 1.5
+// where sigma is half a bar, a bar at most 3 times the rms error.
 TEST_CASE("error bars hold the limit of fine grids in 40 runs", "[validation][grid][long]") {
-    for (const auto& [name, s] : score(8, {20, 21, 22, 23, 24})) {
+    for (const auto& [name, s] : score(8, {30, 31, 32, 33, 34})) {
         INFO(name);
         CHECK(s.inside >= 36);
         CHECK(s.rms_pull() > 0.5);
