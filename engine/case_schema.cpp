@@ -136,10 +136,20 @@ Rule measured_rule() {
         "measured profile and CDs, laid over the result");
 }
 
+Rule accuracy_rule() {
+    return map_rule(
+        "accuracy",
+        {quantity_rule("cd", D::length, above_zero(),
+                       "error that every CD may have: 95 % sampling error and grid error together")
+             .required(),
+         quantity_rule("spacing", D::length, above_zero(),
+                       "where the search for the spacing starts; a run notes here what it found")},
+        "in place of spacing: grid and sampling are refined until the CDs are so sure");
+}
+
 std::vector<Rule> later_rules() {
     const char* study = "belongs into a study file, which names this case as its base: rille study";
     std::vector<Rule> rules = {
-        later_rule("accuracy", "the spacing is not chosen for you; give spacing"),
         later_rule("layout", "mask layouts are not read; write mask.openings"),
         later_rule("start", "runs start from the fresh stack; leave it out"),
         later_rule("contour", "runs start from the fresh stack; leave it out"),
@@ -172,8 +182,13 @@ Rule make_case_rules() {
          word_rule("sides", {"mirror", "periodic"}, "what lies beyond the period")
              .by_default("mirror"),
          quantity_rule("spacing", D::length, above_zero(),
-                       "grid spacing; rounded so that a whole number of cells fills the pitch")
-             .required(),
+                       "grid spacing; rounded so that a whole number of cells fills the pitch; or "
+                       "give accuracy"),
+         accuracy_rule(),
+         word_rule("grid_error", {"assessed", "not assessed"},
+                   "assessed: the same case is run on coarser grids too, which bounds the error "
+                   "that the grid makes; always so under accuracy")
+             .by_default("not assessed"),
          stack_rule(),
          map_rule("liner",
                   {text_rule("material", "what the liner is made of").required(),

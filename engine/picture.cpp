@@ -92,7 +92,7 @@ double draw_measured(Svg& svg, const PictureContext& p, double x, double y) {
         const std::string unit = m.unit == "1" ? "" : m.unit == "deg" ? "°" : " " + m.unit;
         svg.text(x, at, several ? m.feature + ": " + name : name,
                  {11.5, Anchor::start, false, "#222222", false, 0});
-        svg.text(x + panel_width, at, with_error(*m.value, m.sampling_error) + unit,
+        svg.text(x + panel_width, at, value_text(m) + unit,
                  {11.5, Anchor::end, false, "#222222", false, 0});
         at += 17;
     }
@@ -104,7 +104,9 @@ double draw_measured(Svg& svg, const PictureContext& p, double x, double y) {
                  {11.5, Anchor::end, false, "#222222", false, 0});
         at += 17;
     }
-    svg.text(x, at + 2, "± 95 % sampling error; grid error not assessed",
+    svg.text(x, at + 2,
+             p.metrics.has_grid_errors() ? "± 95 % sampling error ± bound on grid error"
+                                         : "± 95 % sampling error; grid error not assessed",
              {10, Anchor::start, false, "#555555", false, 0});
     return at + 16 - y;
 }

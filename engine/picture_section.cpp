@@ -100,7 +100,7 @@ private:
 std::string feature_metric(const PictureContext& p, const std::string& name,
                            const std::string& feature) {
     const Metric* metric = p.metrics.find(name, feature);
-    return metric && metric->value ? with_error(*metric->value, metric->sampling_error) : "";
+    return metric && metric->value ? value_text(*metric) : "";
 }
 
 void draw_cd_mark(Svg& svg, const View& v, const PictureContext& p,

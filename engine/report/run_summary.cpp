@@ -118,13 +118,13 @@ bool is_key(const std::string& name) {
     return keys.count(name) || (cd && name != "bow cd");
 }
 
-std::string value_text(const Metric& m) {
-    return m.value ? with_error(*m.value, m.sampling_error) + unit_text(m.unit) : "none";
+std::string shown_value(const Metric& m) {
+    return m.value ? value_text(m) + unit_text(m.unit) : "none";
 }
 
 DataTable::Cell value_cell(const Metric* m) {
     if (!m) return {"", "", ""};
-    DataTable::Cell cell{value_text(*m)};
+    DataTable::Cell cell{shown_value(*m)};
     if (m->value) cell.copied = shortest(*m->value);
     return cell;
 }
