@@ -11,8 +11,9 @@ void build_start(const Entry& root, Case& result, Problems& problems) {
         !(result.domain.spacing > 0))
         return;
     if (result.domain.symmetry == geometry::Symmetry::full) {
-        problems.add(start.at, start.path,
-                     "a contour is a section; full has none that says it all: use extruded");
+        problems.add(
+            start.at, start.path,
+            "a contour is a section; full has none that says it all: use extruded or revolved");
         return;
     }
     if (root["liner"].is_given)
@@ -20,6 +21,7 @@ void build_start(const Entry& root, Case& result, Problems& problems) {
                      "belongs to mask and stack as drawn; with start leave it out");
     ContourFrame frame;
     frame.key = "start";
+    frame.revolved = result.domain.revolved();
     const std::size_t before = problems.size();
     read_frame(start, frame, problems);
     if (problems.size() != before) return;

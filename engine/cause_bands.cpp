@@ -31,6 +31,7 @@ SectionWalk longest_walk(const Section& section) {
             const auto &a = line.points[i], &b = line.points[i + 1];
             const double length = std::hypot(b[0] - a[0], b[1] - a[1]);
             walk.element.push_back(line.element[i]);
+            walk.is_image.push_back(i < line.images);
             walk.arc.push_back(walk.length + 0.5 * length);
             walk.middle.push_back({0.5 * (a[0] + b[0]), 0.5 * (a[1] + b[1])});
             walk.length += length;

@@ -16,6 +16,7 @@ namespace rille::engine {
 /// The part of a section that is open to the source, as places along it.
 struct SectionWalk {
     std::vector<int> element;
+    std::vector<char> is_image;                ///< in the other half about an axis of revolution
     std::vector<double> arc;                   ///< [nm] from its start to the middle of each piece
     std::vector<std::array<double, 2>> middle; ///< (x, z) [nm]
     double length = 0;                         ///< [nm]

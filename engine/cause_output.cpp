@@ -44,6 +44,7 @@ std::string causes_csv(const Case& c, const SurfaceState& state) {
     const auto walks = walks_of(vertical_section(c.domain, state.surface, section_y(c)));
     for (std::size_t w = 0; w < walks.size(); ++w)
         for (std::size_t i = 0; i < walks[w].element.size(); ++i) {
+            if (walks[w].is_image[i]) continue;
             const int e = walks[w].element[i];
             const auto add = [&](double value) { text += "," + shortest(value); };
             text += shortest(walks[w].middle[i][0]);

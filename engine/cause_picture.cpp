@@ -29,8 +29,9 @@ struct FeatureWalk {
     std::vector<std::size_t> left, floor, right; ///< indices into the walk, in walking order
 };
 
-bool is_in(const Case& c, const SurfaceState& state, int element, const char* region) {
-    return std::strcmp(region_of(c, state.surface, element), region) == 0;
+bool is_in(const Case& c, const SurfaceState& state, const SectionWalk& walk, std::size_t i,
+           const char* region) {
+    return std::strcmp(region_of(c, state.surface, walk.element[i], walk.is_image[i]), region) == 0;
 }
 
 FeatureWalk feature_of(const Case& c, const SurfaceState& state, const SectionWalk& walk) {
@@ -42,15 +43,15 @@ FeatureWalk feature_of(const Case& c, const SurfaceState& state, const SectionWa
         if (std::fabs(walk.middle[i][0] - axis) < std::fabs(walk.middle[middle][0] - axis))
             middle = i;
     std::size_t first = middle, last = middle;
-    const auto is_top = [&](std::size_t i) { return is_in(c, state, walk.element[i], "top"); };
+    const auto is_top = [&](std::size_t i) { return is_in(c, state, walk, i, "top"); };
     while (first > 0 && !is_top(first - 1))
         --first;
     while (last + 1 < walk.element.size() && !is_top(last + 1))
         ++last;
     for (std::size_t i = first; i <= last; ++i) {
-        if (is_in(c, state, walk.element[i], "left wall")) feature.left.push_back(i);
-        if (is_in(c, state, walk.element[i], "right wall")) feature.right.push_back(i);
-        if (is_in(c, state, walk.element[i], "floor")) feature.floor.push_back(i);
+        if (is_in(c, state, walk, i, "left wall")) feature.left.push_back(i);
+        if (is_in(c, state, walk, i, "right wall")) feature.right.push_back(i);
+        if (is_in(c, state, walk, i, "floor")) feature.floor.push_back(i);
     }
     return feature;
 }
@@ -90,8 +91,8 @@ AxisScale common_scale(const std::vector<const fluxes::CauseFields*>& all) {
 
 View feature_view(const Case& c, const Section& section) {
     View v;
-    v.x_min = c.domain.x_min();
-    v.x_max = c.domain.x_min() + c.domain.width_x();
+    v.x_min = c.domain.revolved() ? -c.domain.x_max() : c.domain.x_min();
+    v.x_max = c.domain.x_max();
     double low = 0, high = 0;
     for (const SectionLine& line : section)
         for (const auto& point : line.points) {
@@ -248,7 +249,7 @@ private:
                   fmt::format("What made the shape: removed since the start by each cause, along "
                               "the way of the surface · after {}{}",
                               time_text(state_.time_s),
-                              c_.domain.extruded()
+                              c_.domain.planar_contour()
                                   ? std::string()
                                   : " · section at y = " + rounded(section_y(c_), 20) + " nm"),
                   {12.5, Anchor::start, false, "#444444", false, 0});

@@ -39,10 +39,11 @@ std::vector<std::string> supply_names(const Case& c) {
     return names;
 }
 
-const char* region_of(const Case& c, const geometry::Surface& s, std::size_t element) {
+const char* region_of(const Case& c, const geometry::Surface& s, std::size_t element,
+                      bool is_image) {
     const geometry::Vec3 n = s.normal[element];
     if (n.z < -0.5) return "overhang";
-    if (n.z <= 0.5) return n.x > 0 ? "left wall" : "right wall";
+    if (n.z <= 0.5) return (n.x > 0) != is_image ? "left wall" : "right wall";
     const double h = c.domain.spacing, lowest_top = c.mask.thickness > 0 ? 0.5 * h : -0.5 * h;
     return s.centre[element].z > lowest_top ? "top" : "floor";
 }

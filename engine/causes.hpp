@@ -29,7 +29,9 @@ std::vector<std::string> supply_names(const Case&);
 /// Where an element of the surface lies: "top" (facing up, at the mask bottom or above), "floor",
 /// "left wall" and "right wall" of the gas beside it (steeper than 60 deg from horizontal), or
 /// "overhang".
-const char* region_of(const Case&, const geometry::Surface&, std::size_t element);
+/// `is_image`: seen in the other half of a section through the axis of revolution.
+const char* region_of(const Case&, const geometry::Surface&, std::size_t element,
+                      bool is_image = false);
 inline constexpr const char* regions[] = {"top", "left wall", "floor", "right wall", "overhang"};
 
 } // namespace rille::engine

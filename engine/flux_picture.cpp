@@ -154,8 +154,8 @@ AxisScale share_scale(const std::vector<Line>& lines) {
 
 View section_view(const Case& c, const Section& section) {
     View v;
-    v.x_min = c.domain.x_min();
-    v.x_max = -c.domain.x_min();
+    v.x_min = c.domain.revolved() ? -c.domain.x_max() : c.domain.x_min();
+    v.x_max = c.domain.x_max();
     double low = 0, high = 0;
     for (const SectionLine& line : section)
         for (const auto& point : line.points) {

@@ -15,6 +15,8 @@ inline constexpr const char* causes_png = "causes.png";
 /// Arrivals and causes along the surface at chosen times: TIMEs.csv in this folder.
 inline constexpr const char* arc_data = "arc_data";
 inline constexpr const char* metrics = "metrics.json";
+/// The same case on other grids, where grid errors are assessed.
+inline constexpr const char* grids = "grids.json";
 /// The measured contour against the front, where the case names one.
 inline constexpr const char* comparison = "comparison.csv";
 inline constexpr const char* series = "front.pvd";
@@ -37,7 +39,7 @@ inline constexpr const char* inputs = "inputs"; ///< copies of the files that th
 /// Left while a run is not at its end: what `resume` takes up.
 inline constexpr const char* state = "state.bin";
 inline constexpr const char* all[] = {
-    resolved_case, record,      history,    profile,    metrics, series,     level_set,
-    picture_svg,   picture_png, sheath_svg, sheath_png, causes,  causes_svg, causes_png};
+    resolved_case, record,     history,    profile, metrics, series,     level_set, picture_svg,
+    picture_png,   sheath_svg, sheath_png, grids,   causes,  causes_svg, causes_png};
 
 } // namespace rille::engine::output_names

@@ -126,19 +126,22 @@ private:
         const std::size_t before = problems_.size();
         for (std::size_t r = 1; r < csv_.rows.size(); ++r) {
             const CsvRow& row = csv_.rows[r];
-            if (row.size() < 6) {
+            const std::size_t chain = frame_.revolved ? 6 : 5;
+            if (row.size() <= chain) {
                 wrong(row[0].at, fmt::format("{} values in a row of a profile", row.size()));
                 continue;
             }
-            double v[6];
-            for (int c = 0; c < 6; ++c)
+            double v[5];
+            for (int c = 0; c < 5; ++c)
                 v[c] = csv_number(row[c], true, problems_);
             const double along_x = std::cos(v[3] * deg), along_z = -std::sin(v[3] * deg);
             const double half = 0.5 * v[4];
             const auto at = [&](double s) {
                 return placed(frame_, v[0] + s * along_x, v[1] + s * along_z, false);
             };
-            elements.push_back({at(-half), at(half), static_cast<int>(v[5]), row[0].at});
+            elements.push_back({at(-half), at(half),
+                                static_cast<int>(csv_number(row[chain], true, problems_)),
+                                row[0].at});
         }
         if (frame_.nm_per_px) wrong(csv_.rows[0][0].at, "the points are in nm: leave scale out");
         if (elements.size() < 2) wrong({csv_.name, 0, 0}, "holds fewer than two elements");

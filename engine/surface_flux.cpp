@@ -180,7 +180,7 @@ std::string flux_csv(const Case& c, const SurfaceFlux& flux) {
     }
     text += "\n";
     const std::vector<double> arc =
-        c.domain.extruded() ? arc_length(state.surface) : std::vector<double>();
+        c.domain.planar_contour() ? arc_length(state.surface) : std::vector<double>();
     for (std::size_t e = 0; e < state.surface.size(); ++e) {
         text += place_row(c, state.surface, arc, e) + "," + region_of(c, state.surface, e) +
                 material_row(c, state, e);

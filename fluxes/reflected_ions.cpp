@@ -73,7 +73,7 @@ public:
         result.by_bounces.assign(apart ? batches : 1, std::vector<double>(bounce_classes * slots));
         double lost = 0, incident = 0;
         for (const IonSource& ion : ions_)
-            incident += ion.flux * domain_.width_x() * (domain_.extruded() ? 1 : domain_.width_y());
+            incident += ion.flux * domain_.base_area();
         for (const Chunk& chunk : chunks) {
             std::vector<double>& bounces = result.by_bounces[apart ? chunk.batch : 0];
             const double share = apart ? 1.0 : 1.0 / batches;
