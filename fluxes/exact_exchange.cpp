@@ -1,7 +1,6 @@
 // SPDX-License-Identifier: Apache-2.0
 #include "fluxes/exact_exchange.hpp"
 
-#include "fluxes/in_plane.hpp"
 #include "fluxes/open_sky.hpp"
 #include "geometry/check.hpp"
 
@@ -14,17 +13,6 @@
 
 namespace rille::fluxes {
 namespace {
-
-constexpr double pi = 3.14159265358979323846;
-
-/// The cosine law in the plane: half the flux for a unit of the sine.
-InPlane cosine_in_plane() {
-    InPlane plane;
-    plane.angle = {-0.5 * pi, 0.5 * pi};
-    plane.share = {0, 1};
-    plane.moment = {0, 0};
-    return plane;
-}
 
 using RowMatrix =
     Eigen::Map<const Eigen::Matrix<double, Eigen::Dynamic, Eigen::Dynamic, Eigen::RowMajor>>;
@@ -43,13 +31,12 @@ ExactExchange::ExactExchange(const geometry::Domain& domain, const geometry::Sur
     const std::vector<int> ends = string_ends(domain, surface, order);
     patches_ = std::make_shared<Patches>(surface, caster, std::move(order), material, ends, sizes);
     const OpenSky sky(domain, surface);
-    const InPlane cosine = cosine_in_plane();
     direct_.assign(surface.size(), 0.0);
     tbb::parallel_for(tbb::blocked_range<int>(0, static_cast<int>(size()), 64),
                       [&](const tbb::blocked_range<int>& range) {
                           for (int e = range.begin(); e != range.end(); ++e)
                               if (patches_->patch_of(e) >= 0)
-                                  direct_[e] = std::clamp(sky.flux(cosine, e), 0.0, 1.0);
+                                  direct_[e] = std::clamp(sky.cosine_flux(e), 0.0, 1.0);
                       });
     std::vector<double> view(size());
     for (std::size_t e = 0; e < size(); ++e)

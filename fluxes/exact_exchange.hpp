@@ -38,7 +38,7 @@ std::vector<int> string_ends(const geometry::Domain&, const geometry::Surface&,
 class ExactExchange : public ExchangeOperator {
 public:
     /// material: per element, or empty; patches end where it changes. The caster only measures
-    /// gaps.
+    /// gaps. Throws NumericsError where the open surface touches or crosses itself.
     ExactExchange(const geometry::Domain&, const geometry::Surface&, const geometry::RayCaster&,
                   const std::vector<int>& material, const PatchSizes& sizes = {});
 
