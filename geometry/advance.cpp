@@ -29,15 +29,15 @@ double Advance::change(const Slopes& s, const RowPair& row, const RateWindow& wi
     if (tables_.constant(row, window)) {
         speed.rate = tables_.rate(row, 0);
         double steep = upwind_steepness(s, speed.rate > 0, speed.waves);
-        if (fan && !extruded_) { // there a corner may meet a smooth face
+        if (fan && !planar_) { // there a corner may meet a smooth face
             double waves;
             const double down = upwind_steepness(s, speed.rate <= 0, waves);
             if ((steep - 1) * (down - 1) <= 0 && std::fabs(steep - 1) > unresolved) steep = 1;
         }
         speed.waves *= std::fabs(speed.rate);
-        return fan && extruded_ ? speed.rate : speed.rate * steep;
+        return fan && planar_ ? speed.rate : speed.rate * steep;
     }
-    return lax_friedrichs(tables_, row, window, extruded_, s, speed);
+    return lax_friedrichs(tables_, row, window, planar_, s, speed);
 }
 
 namespace {
@@ -53,7 +53,7 @@ struct FluxCells {
 
     void add(const Band& band, const double* phi, std::size_t c, const RowPair& row,
              const RateWindow& about) {
-        for (int axis = 0; axis < 3; axis += band.domain.extruded() ? 2 : 1) {
+        for (int axis = 0; axis < 3; axis += band.domain.planar_contour() ? 2 : 1) {
             const Differences d = differences_along(band, phi, c, axis, 0);
             lanes.back[axis][used] = d.back;
             lanes.ahead[axis][used] = d.ahead;
@@ -65,14 +65,14 @@ struct FluxCells {
         rows[used] = &row;
         window[used++] = &about;
     }
-    void find(const RateTables& tables, bool extruded, double inverse_spacing) {
-        lanes.find_slopes(extruded, inverse_spacing);
+    void find(const RateTables& tables, bool planar, double inverse_spacing) {
+        lanes.find_slopes(planar, inverse_spacing);
         tables.look_up_marks(lanes, used);
         lanes.find_tilts();
         for (int n = 0; n < used; ++n)
             held[n] = rows[n]->share == 0 && rows[n]->row == window[n]->row &&
                       tables.look_up_nodes(lanes, n, *window[n]);
-        lanes.find_fluxes(extruded);
+        lanes.find_fluxes(planar);
     }
     bool ordinary(int n) const { return held[n] && lanes.ordinary[n] != 0; }
     Slopes slopes(int n) const {
@@ -92,12 +92,12 @@ template <class Take>
 void Advance::sweep(const double* phi, std::size_t begin, std::size_t end, const Take& take) const {
     FluxCells cells;
     const auto finish = [&] {
-        cells.find(tables_, extruded_, 1 / h_);
+        cells.find(tables_, planar_, 1 / h_);
         for (int n = 0; n < cells.used; ++n) {
             Speed speed{cells.lanes.waves[n], cells.lanes.smooth[n] != 0, cells.lanes.rate[n]};
             double change = cells.lanes.change[n];
             if (!cells.ordinary(n))
-                change = lax_friedrichs(tables_, *cells.rows[n], *cells.window[n], extruded_,
+                change = lax_friedrichs(tables_, *cells.rows[n], *cells.window[n], planar_,
                                         cells.slopes(n), speed);
             take(cells.cell[n], change, speed);
         }
@@ -125,7 +125,7 @@ void Advance::sweep(const double* phi, std::size_t begin, std::size_t end, const
 /// The same at the mean rate over `dt` through layers: each acts for its share of the time.
 double Advance::layered_change(const Slopes& s, const Layers& layers, bool fan, double dt) const {
     std::array<double, Layers::capacity> share;
-    const double angle = tilt_of(extruded_, s.mean(0), s.mean(1), s.mean(2)).angle;
+    const double angle = tilt_of(planar_, s.mean(0), s.mean(1), s.mean(2)).angle;
     walk(tables_, layers, angle, dt, share);
     double sum = 0;
     for (int k = 0; k < layers.count; ++k) {

@@ -47,7 +47,7 @@ public:
             GrownFilms& films, const std::vector<int>& growth_film, const AdvanceLimits& limits)
         : front_(front), band_(front.band()), surface_(surface), rates_(rates), tables_(rates),
           films_(films), growth_film_(growth_film), limits_(limits),
-          finder_(band_, rates, tables_, stack, films), extruded_(band_.domain.extruded()),
+          finder_(band_, rates, tables_, stack, films), planar_(band_.domain.planar_contour()),
           h_(band_.domain.spacing) {
         report_.moved.assign(surface.size(), 0.0);
     }
@@ -69,8 +69,8 @@ private:
     Slopes special_slopes(const double* phi, const LayeredCell&) const;
     Slopes slopes(const double* phi, std::size_t c, unsigned unseen, bool directional) const {
         const Limiter limiter = directional ? Limiter::directional : Limiter::isotropic;
-        return extruded_ ? slopes_2d(band_, phi, c, 1 / h_, unseen, limiter)
-                         : slopes_3d(band_, phi, c, 1 / h_, unseen, limiter);
+        return planar_ ? slopes_2d(band_, phi, c, 1 / h_, unseen, limiter)
+                       : slopes_3d(band_, phi, c, 1 / h_, unseen, limiter);
     }
     void find_even_cells();
     bool may_rest() const;
@@ -97,7 +97,7 @@ private:
     const std::vector<int>& growth_film_;
     const AdvanceLimits& limits_;
     LayerFinder finder_;
-    bool extruded_;
+    bool planar_;
     double h_;
     AdvanceReport report_;
     double moved_since_refresh_ = 0; ///< [cells]
@@ -105,7 +105,7 @@ private:
     RawVector<Plate> plates_;        ///< the elements where they were at the last refresh
     RawVector<int> element_;         ///< of each cell, -1: none
     RawVector<RowPair> row_;
-    /// extruded: whether the nearest point is a sharp corner; full: see find_even_cells.
+    /// planar contour: whether the nearest point is a sharp corner; full: see find_even_cells.
     RawVector<char> fan_;
     RawVector<double> slope_, next_; ///< dphi/dt at the first stage; phi after it
     std::vector<LayeredCell> layered_;

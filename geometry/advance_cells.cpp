@@ -56,7 +56,7 @@ Foot Advance::foot(std::size_t c) const {
 /// full: whether phi of a cell is the time at which the front passes it, but for the rate: where
 /// the rate does not depend on the normal and no neighbour has a faster one to spread from.
 void Advance::find_even_cells() {
-    if (extruded_ || (!something_constant_ && layered_.empty())) return;
+    if (planar_ || (!something_constant_ && layered_.empty())) return;
     RawVector<double> rate(band_.size()); // NaN where it depends on the normal
     for_ranges(band_.size(), [&](std::size_t begin, std::size_t end) {
         for (std::size_t c = begin; c < end; ++c) {
@@ -88,7 +88,7 @@ void Advance::classify_cells() {
             const int e = element_[c];
             if (e < 0) continue;
             row_[c].row = meets_layers(c) || resting_sides(c) ? layered_row : below_[e].row;
-            if (!extruded_) continue;
+            if (!planar_) continue;
             blend(row_[c], place_of(c));
             fan_[c] = in_fan(c);
         }
@@ -176,7 +176,7 @@ void Advance::find_wall(LayeredCell& at) const {
         if (band_.domain.sides == Sides::periodic) {
             const double wx = band_.domain.width_x(), wy = band_.domain.width_y();
             d.x -= wx * std::round(d.x / wx);
-            if (!extruded_) d.y -= wy * std::round(d.y / wy);
+            if (!planar_) d.y -= wy * std::round(d.y / wy);
         }
         return d;
     };
@@ -208,7 +208,7 @@ void Advance::classify_elements() {
             for (std::size_t e = begin; e < end; ++e) {
                 const Plate& plate = plates_[e];
                 const Vec3& n = surface_.normal[e];
-                element_tilt_[e] = tilt_of(extruded_, n.x, n.y, n.z);
+                element_tilt_[e] = tilt_of(planar_, n.x, n.y, n.z);
                 below_[e].z = plate.centre.z;
                 below_[e].row =
                     finder_.row_below(static_cast<int>(e), {plate.centre, -plate.normal, false});

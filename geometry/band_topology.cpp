@@ -117,7 +117,7 @@ double eikonal(const Band& band, std::size_t c, double unknown) {
 /// Marks the cells with a neighbour of the other sign. Only contouring in three dimensions asks.
 RawVector<char> beside_contour(const Band& band) {
     RawVector<char> beside(band.size());
-    const bool flat = band.domain.extruded();
+    const bool flat = band.domain.planar_contour();
     for_ranges(band.size(), [&](std::size_t begin, std::size_t end) {
         for (std::size_t c = begin; c < end; ++c) {
             beside[c] = 0;
@@ -169,7 +169,7 @@ std::vector<Fresh> missing_cells(const Band& band, const RawVector<char>& beside
     static constexpr int step[6][3] = {{-1, 0, 0}, {1, 0, 0},  {0, -1, 0},
                                        {0, 1, 0},  {0, 0, -1}, {0, 0, 1}};
     const Domain& d = band.domain;
-    const bool flat = d.extruded();
+    const bool flat = d.planar_contour();
     const Order order(band);
     std::vector<std::vector<Fresh>> parts(range_of(count) + 1);
     for_ranges(count, [&](std::size_t begin, std::size_t end) {
@@ -232,7 +232,7 @@ std::vector<int> insert(Band& band, RawVector<char>& beside, const std::vector<F
     band.phi.swap(phi);
     beside.swap(marks);
     connect(band);
-    if (band.domain.extruded()) return added;
+    if (band.domain.planar_contour()) return added;
     const auto other_side = [&](int c, int n) {
         return n >= 0 && (band.phi[n] < 0) != (band.phi[c] < 0);
     };
@@ -326,12 +326,12 @@ void connect(Band& band) {
     over_rows([&](std::size_t row) { // each links itself to the rows after it
         const int j = static_cast<int>(row % ny);
         if (row + ny < rows.rows()) join_rows(band, rows, row, row + ny, 5);
-        if (d.extruded()) return;
+        if (d.planar_contour()) return;
         if (j + 1 < ny) return join_rows(band, rows, row, row + 1, 3);
         if (d.sides == Sides::periodic) return join_rows(band, rows, row, row - j, 3);
         mirror_row(band, rows.first(row), rows.first(row + 1), 3);
     });
-    if (d.extruded() || d.sides == Sides::periodic) return;
+    if (d.planar_contour() || d.sides == Sides::periodic) return;
     for (std::size_t row = 0; row < rows.rows(); row += ny)
         mirror_row(band, rows.first(row), rows.first(row + 1), 2);
 }
@@ -372,7 +372,7 @@ void retopologise(Band& band, int layers) {
 }
 
 bool contour_lacks_cells(const Band& band) {
-    if (band.domain.extruded()) return false;
+    if (band.domain.planar_contour()) return false;
     const RawVector<char> beside = beside_contour(band);
     return largest_of_ranges(band.size(), [&](std::size_t begin, std::size_t end) {
                for (std::size_t c = begin; c < end; ++c)
@@ -384,7 +384,7 @@ bool contour_lacks_cells(const Band& band) {
 }
 
 double edge_distance(const Band& band) {
-    const bool flat = band.domain.extruded();
+    const bool flat = band.domain.planar_contour();
     const double far = 1e3 * band_half_width * band.domain.spacing;
     return far - largest_of_ranges(band.size(), [&](std::size_t begin, std::size_t end) {
                double most = 0;

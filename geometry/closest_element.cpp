@@ -52,7 +52,7 @@ Vec3 from_centre(const Domain& domain, const Vec3& p, const Plate& plate) {
         if (std::fabs(d) > 0.5 * width) d -= width * std::round(d / width);
     };
     shorten(apart.x, domain.width_x());
-    if (!domain.extruded()) shorten(apart.y, domain.width_y());
+    if (!domain.planar_contour()) shorten(apart.y, domain.width_y());
     return apart;
 }
 
@@ -125,9 +125,9 @@ void Search::pack(const std::vector<double>& moved) {
     for_ranges(plates_.size(), [&](std::size_t begin, std::size_t end) {
         for (std::size_t e = begin; e < end; ++e) {
             const Vec3& n = surface_.normal[e];
-            const double area = surface_.area[e];
             plates_[e] = {moved.empty() ? surface_.centre[e] : surface_.centre[e] - n * moved[e], n,
-                          domain_.extruded() ? 0.5 * area : std::sqrt(area * (1 / pi))};
+                          domain_.planar_contour() ? 0.5 * surface_.length(static_cast<int>(e))
+                                                   : std::sqrt(surface_.area[e] * (1 / pi))};
         }
     });
 }
@@ -140,7 +140,7 @@ void Search::assign_homes() {
         for (std::size_t e = begin; e < end; ++e) {
             const Vec3& c = plates_[e].centre;
             const int i = static_cast<int>(std::floor((c.x - domain_.x_min()) * scale));
-            const int j = domain_.extruded()
+            const int j = domain_.planar_contour()
                               ? 0
                               : static_cast<int>(std::floor((c.y - domain_.y_min()) * scale));
             home[e] = index.find(fold_index(i, domain_.cells_x, domain_.sides),
@@ -217,7 +217,7 @@ void Search::offer(const Vec3& p, int e, Candidate& best) const {
 /// may know one only.
 void Search::offer_joined(const Vec3& p, int e, Candidate& best) const {
     offer(p, e, best);
-    if (!domain_.extruded()) return;
+    if (!domain_.planar_contour()) return;
     for (const int n : {surface_.previous[e], surface_.next[e]})
         if (n >= 0) offer(p, n, best);
 }
@@ -281,8 +281,8 @@ ClosestElements Search::run() {
 
 } // namespace
 
-Vec3 nearest_point(const Surface& s, bool extruded, int e, const Vec3& p) {
-    if (extruded)
+Vec3 nearest_point(const Surface& s, bool planar, int e, const Vec3& p) {
+    if (planar)
         return nearest_on_segment(s.vertices[s.corners[e][0]], s.vertices[s.corners[e][1]], p);
     const Vec3 from = p - s.centre[e];
     const Vec3 across = from - s.normal[e] * from.dot(s.normal[e]);
@@ -291,8 +291,8 @@ Vec3 nearest_point(const Surface& s, bool extruded, int e, const Vec3& p) {
     return s.centre[e] + across * std::sqrt(radius_square / square);
 }
 
-Vec3 exact_nearest_point(const Surface& s, bool extruded, int e, const Vec3& p) {
-    if (extruded) return nearest_point(s, extruded, e, p);
+Vec3 exact_nearest_point(const Surface& s, bool planar, int e, const Vec3& p) {
+    if (planar) return nearest_point(s, planar, e, p);
     const auto& q = s.corners[e];
     const Vec3 first = nearest_on_triangle(s.vertices[q[0]], s.vertices[q[1]], s.vertices[q[2]], p);
     if (q[2] == q[3]) return first;

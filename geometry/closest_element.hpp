@@ -24,7 +24,7 @@ struct ClosestElements {
 };
 
 /// Nearest point to p on element e, exact for segments, triangles and planar quads.
-Vec3 exact_nearest_point(const Surface&, bool extruded, int e, const Vec3& p);
+Vec3 exact_nearest_point(const Surface&, bool planar, int e, const Vec3& p);
 
 /// Nearest elements for all cells, `moved` [nm] along -normal from where `surface` has them (empty:
 /// not moved). Of elements equally near (at a corner), the one that faces the cell most wins, then

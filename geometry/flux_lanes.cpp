@@ -25,20 +25,20 @@ struct Boxes {
 // starts. Operations are those of one lane whatever the width: none is contracted or reordered.
 #if defined(__x86_64__) && defined(__GNUC__)
 [[gnu::target_clones("avx512f", "avx2", "default")]] //
-void slopes_of_lanes(FluxLanes&, bool extruded, double inverse_spacing);
+void slopes_of_lanes(FluxLanes&, bool planar, double inverse_spacing);
 [[gnu::target_clones("avx512f", "avx2", "default")]] //
 void tilts_of_lanes(FluxLanes&);
 [[gnu::target_clones("avx512f", "avx2", "default")]] //
-void boxes_of_lanes(const FluxLanes&, bool extruded, Boxes&);
+void boxes_of_lanes(const FluxLanes&, bool planar, Boxes&);
 [[gnu::target_clones("avx512f", "avx2", "default")]] //
-void cones_of_lanes(FluxLanes&, bool extruded, Boxes&);
+void cones_of_lanes(FluxLanes&, bool planar, Boxes&);
 [[gnu::target_clones("avx512f", "avx2", "default")]] //
-void changes_of_lanes(FluxLanes&, bool extruded, Boxes&);
+void changes_of_lanes(FluxLanes&, bool planar, Boxes&);
 #endif
 
-void slopes_of_lanes(FluxLanes& l, bool extruded, double inverse_spacing) {
+void slopes_of_lanes(FluxLanes& l, bool planar, double inverse_spacing) {
     for (int axis = 0; axis < 3; ++axis) {
-        if (extruded && axis == 1) continue;
+        if (planar && axis == 1) continue;
         const double *back = l.back[axis].at, *ahead = l.ahead[axis].at, *bend = l.bend[axis].at;
         const double *left = l.bend_left[axis].at, *right = l.bend_right[axis].at;
         double *minus = l.minus[axis].at, *plus = l.plus[axis].at;
@@ -53,7 +53,7 @@ void slopes_of_lanes(FluxLanes& l, bool extruded, double inverse_spacing) {
         const double gx = 0.5 * (l.minus[0][n] + l.plus[0][n]);
         const double gy = 0.5 * (l.minus[1][n] + l.plus[1][n]);
         const double gz = 0.5 * (l.minus[2][n] + l.plus[2][n]);
-        l.horizontal[n] = extruded ? gx : std::sqrt(gx * gx + gy * gy);
+        l.horizontal[n] = planar ? gx : std::sqrt(gx * gx + gy * gy);
         l.vertical[n] = gz;
     }
     for (int n = 0; n < count; ++n) {
@@ -102,14 +102,14 @@ inline bool crosses(double low, double high, double axis) {
 
 } // namespace
 
-void boxes_of_lanes(const FluxLanes& l, bool extruded, Boxes& b) {
+void boxes_of_lanes(const FluxLanes& l, bool planar, Boxes& b) {
     for (int n = 0; n < count; ++n) {
         const double minus = l.minus[2][n], plus = l.plus[2][n];
         const double low = minus < plus ? minus : plus, high = minus < plus ? plus : minus;
         b.z_middle[n] = 0.5 * (low + high);
         b.tall[n] = high - low;
     }
-    if (extruded) {
+    if (planar) {
         for (int n = 0; n < count; ++n) {
             const double minus = l.minus[0][n], plus = l.plus[0][n];
             const double low = minus < plus ? minus : plus, high = minus < plus ? plus : minus;
@@ -131,8 +131,8 @@ void boxes_of_lanes(const FluxLanes& l, bool extruded, Boxes& b) {
     }
 }
 
-void cones_of_lanes(FluxLanes& l, bool extruded, Boxes& b) {
-    const double lowest = extruded ? -pi : 0;
+void cones_of_lanes(FluxLanes& l, bool planar, Boxes& b) {
+    const double lowest = planar ? -pi : 0;
     for (int n = 0; n < count; ++n) {
         const double h = b.h_middle[n], z = b.z_middle[n], wide = b.wide[n], tall = b.tall[n];
         const double square = wide * wide + tall * tall, middle = h * h + z * z;
@@ -178,10 +178,10 @@ void cones_of_lanes(FluxLanes& l, bool extruded, Boxes& b) {
     }
 }
 
-void changes_of_lanes(FluxLanes& l, bool extruded, Boxes& b) {
+void changes_of_lanes(FluxLanes& l, bool planar, Boxes& b) {
     for (int n = 0; n < count; ++n) {
-        b.share_x[n] = extruded ? b.horizontal[n] : b.horizontal[n] * b.share_x[n];
-        b.share_y[n] = extruded ? 0.0 : b.horizontal[n] * b.share_y[n];
+        b.share_x[n] = planar ? b.horizontal[n] : b.horizontal[n] * b.share_x[n];
+        b.share_y[n] = planar ? 0.0 : b.horizontal[n] * b.share_y[n];
     }
     for (int n = 0; n < count; ++n) {
         const double speed_x = b.share_x[n], speed_y = b.share_y[n], speed_z = b.vertical[n];
@@ -200,17 +200,17 @@ void changes_of_lanes(FluxLanes& l, bool extruded, Boxes& b) {
     }
 }
 
-void FluxLanes::find_slopes(bool extruded, double inverse_spacing) {
-    slopes_of_lanes(*this, extruded, inverse_spacing);
+void FluxLanes::find_slopes(bool planar, double inverse_spacing) {
+    slopes_of_lanes(*this, planar, inverse_spacing);
 }
 void FluxLanes::find_tilts() {
     tilts_of_lanes(*this);
 }
-void FluxLanes::find_fluxes(bool extruded) {
+void FluxLanes::find_fluxes(bool planar) {
     Boxes boxes;
-    boxes_of_lanes(*this, extruded, boxes);
-    cones_of_lanes(*this, extruded, boxes);
-    changes_of_lanes(*this, extruded, boxes);
+    boxes_of_lanes(*this, planar, boxes);
+    cones_of_lanes(*this, planar, boxes);
+    changes_of_lanes(*this, planar, boxes);
 }
 
 } // namespace rille::geometry

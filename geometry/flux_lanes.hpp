@@ -54,9 +54,9 @@ struct FluxLanes {
     Values smooth;   ///< 1 or 0, as `smooth(Slopes)`
     Values rate, waves, change;
 
-    void find_slopes(bool extruded, double inverse_spacing);
+    void find_slopes(bool planar, double inverse_spacing);
     void find_tilts();
-    void find_fluxes(bool extruded);
+    void find_fluxes(bool planar);
 };
 
 } // namespace rille::geometry

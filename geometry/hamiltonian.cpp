@@ -28,8 +28,8 @@ double turn_of(double horizontal, double vertical) {
 
 } // namespace
 
-Tilt tilt_of(bool extruded, double gx, double gy, double gz) {
-    return exact_tilt(extruded ? gx : std::sqrt(gx * gx + gy * gy), gz);
+Tilt tilt_of(bool planar, double gx, double gy, double gz) {
+    return exact_tilt(planar ? gx : std::sqrt(gx * gx + gy * gy), gz);
 }
 
 RateTables::RateTables(const NormalRates& rates) : rates_(rates) {
@@ -220,11 +220,11 @@ struct Box {
 };
 
 /// `low` and `high` are the least and the largest magnitude along each axis.
-Box box_of(bool extruded, const Slopes& s, const double* low, const double* high) {
+Box box_of(bool planar, const Slopes& s, const double* low, const double* high) {
     Box b;
     b.z_low = std::min(s.minus[2], s.plus[2]);
     b.z_high = std::max(s.minus[2], s.plus[2]);
-    if (extruded) {
+    if (planar) {
         b.h_low = std::min(s.minus[0], s.plus[0]);
         b.h_high = std::max(s.minus[0], s.plus[0]);
         return b;
@@ -240,9 +240,9 @@ Tilt turned(const Tilt& t, double by) {
 }
 
 /// Wave speed over all tilts a box of slopes holds.
-WaveSpeed over_box(const RateTables& tables, int row, bool extruded, const Box& b, const Tilt& mean,
+WaveSpeed over_box(const RateTables& tables, int row, bool planar, const Box& b, const Tilt& mean,
                    const RateWindow& window) {
-    const double lowest = extruded ? -pi : 0;
+    const double lowest = planar ? -pi : 0;
     const double wide = b.h_high - b.h_low, high = b.z_high - b.z_low;
     const double square = wide * wide + high * high;
     const double h = 0.5 * (b.h_low + b.h_high), z = 0.5 * (b.z_low + b.z_high);
@@ -254,13 +254,13 @@ WaveSpeed over_box(const RateTables& tables, int row, bool extruded, const Box& 
         if (low.angle >= lowest && up.angle <= pi)
             return tables.wave_speed_of_cone(row, low, up, window);
     }
-    const Tilt full_low{lowest, 0, extruded ? -1.0 : 1.0, -1}, full_high{pi, 0, -1, -1};
+    const Tilt full_low{lowest, 0, planar ? -1.0 : 1.0, -1}, full_high{pi, 0, -1, -1};
     const bool holds_origin = b.h_low <= 0 && b.h_high >= 0 && b.z_low <= 0 && b.z_high >= 0;
     if (holds_origin) return tables.wave_speed(row, full_low, full_high, window);
     Tilt corner[4] = {exact_tilt(b.h_low, b.z_low), exact_tilt(b.h_low, b.z_high),
                       exact_tilt(b.h_high, b.z_low), exact_tilt(b.h_high, b.z_high)};
     std::sort(corner, corner + 4, [](const Tilt& a, const Tilt& c) { return a.angle < c.angle; });
-    const bool wraps = extruded && b.h_low < 0 && b.h_high > 0 && b.z_high < 0;
+    const bool wraps = planar && b.h_low < 0 && b.h_high > 0 && b.z_high < 0;
     if (!wraps) return tables.wave_speed(row, corner[0], corner[3], window);
     // Facing down across +-pi: the tilts are those above the least positive and below the largest
     // negative corner.
@@ -273,7 +273,7 @@ WaveSpeed over_box(const RateTables& tables, int row, bool extruded, const Box& 
                 tables.wave_speed(row, full_low, negative, window));
 }
 
-std::array<double, 3> of_row(const RateTables& tables, int row, bool extruded, const Slopes& s,
+std::array<double, 3> of_row(const RateTables& tables, int row, bool planar, const Slopes& s,
                              const Tilt& mean, const RateWindow& window) {
     if (row < 0) return {0, 0, 0};
     double low[3], high[3];
@@ -291,19 +291,18 @@ std::array<double, 3> of_row(const RateTables& tables, int row, bool extruded, c
                 rate * share(high[1], low[0] * low[0] + low[2] * low[2]),
                 rate * share(high[2], low[0] * low[0] + low[1] * low[1])};
     }
-    const WaveSpeed w =
-        over_box(tables, row, extruded, box_of(extruded, s, low, high), mean, window);
-    if (extruded) return {w.horizontal, 0, w.vertical};
+    const WaveSpeed w = over_box(tables, row, planar, box_of(planar, s, low, high), mean, window);
+    if (planar) return {w.horizontal, 0, w.vertical};
     return {w.horizontal * share(high[0], low[1] * low[1]),
             w.horizontal * share(high[1], low[0] * low[0]), w.vertical};
 }
 
 std::array<double, 3> dissipation(const RateTables& tables, const RowPair& rows,
-                                  const RateWindow& window, bool extruded, const Slopes& s,
+                                  const RateWindow& window, bool planar, const Slopes& s,
                                   const Tilt& mean) {
-    std::array<double, 3> a = of_row(tables, rows.row, extruded, s, mean, window);
+    std::array<double, 3> a = of_row(tables, rows.row, planar, s, mean, window);
     if (rows.share > 0) {
-        const std::array<double, 3> other = of_row(tables, rows.other, extruded, s, mean, window);
+        const std::array<double, 3> other = of_row(tables, rows.other, planar, s, mean, window);
         for (int axis = 0; axis < 3; ++axis)
             a[axis] += rows.share * (other[axis] - a[axis]);
     }
@@ -327,13 +326,13 @@ double upwind_steepness(const Slopes& s, bool recedes, double& waves) {
 }
 
 double lax_friedrichs(const RateTables& tables, const RowPair& rows, const RateWindow& window,
-                      bool extruded, const Slopes& s, Speed& speed) {
+                      bool planar, const Slopes& s, Speed& speed) {
     const double gx = s.mean(0), gy = s.mean(1);
     double length = 0;
-    Tilt mean = tables.tilt(extruded ? gx : std::sqrt(gx * gx + gy * gy), s.mean(2), length);
+    Tilt mean = tables.tilt(planar ? gx : std::sqrt(gx * gx + gy * gy), s.mean(2), length);
     tables.find_segment(mean);
     speed.rate = tables.rate(rows, mean, window);
-    const std::array<double, 3> a = dissipation(tables, rows, window, extruded, s, mean);
+    const std::array<double, 3> a = dissipation(tables, rows, window, planar, s, mean);
     speed.waves = a[0] + a[1] + a[2];
     speed.smooth = smooth(s);
     double change = speed.rate * length;

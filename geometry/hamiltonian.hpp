@@ -16,8 +16,8 @@ struct Tilt {
     double angle = 0, sine = 0, cosine = 1;
     int segment = -1; ///< of the rate tables, where the angle lies or near it; -1: not known
 };
-/// extruded: angle atan2(g.x, g.z); full: angle between g and +z.
-Tilt tilt_of(bool extruded, double gx, double gy, double gz);
+/// planar contour: angle atan2(g.x, g.z); full: angle between g and +z.
+Tilt tilt_of(bool planar, double gx, double gy, double gz);
 
 /// Largest |dH/dp| over a range of tilts for H(p) = R(tilt) |p|: along the horizontal direction of
 /// the normal and along z [nm/s].
@@ -131,7 +131,7 @@ struct Speed {
 
 /// dphi/dt [nm/s] of a cell by local Lax-Friedrichs: R(n) |grad phi| at the mean slopes plus, along
 /// each axis, half the largest |dH/dp| over the box of slopes times their difference.
-double lax_friedrichs(const RateTables&, const RowPair&, const RateWindow&, bool extruded,
+double lax_friedrichs(const RateTables&, const RowPair&, const RateWindow&, bool planar,
                       const Slopes&, Speed&);
 
 } // namespace rille::geometry

@@ -97,6 +97,7 @@ Metrics metrics_from_json(const json& written) {
         Metric metric{m.at("name"), m.at("feature"), {}, m.at("unit"), 0, "", ""};
         if (!m.at("value").is_null()) metric.value = m.at("value").get<double>();
         if (m.at("sampling_error").is_number()) metric.sampling_error = m.at("sampling_error");
+        if (m.at("grid_error").is_number()) metric.grid_error = m.at("grid_error").get<double>();
         metric.definition = m.value("definition", "");
         metric.note = m.value("note", "");
         metrics.metrics.push_back(metric);

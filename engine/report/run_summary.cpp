@@ -46,6 +46,7 @@ std::string openings_text(const Case& c) {
     if (shown < c.mask.openings.size())
         text += fmt::format("; and {} more", c.mask.openings.size() - shown);
     const geometry::Domain& d = c.domain;
+    if (d.revolved()) return text + ", in a round cell " + in_nm(2 * d.width_x()) + " across";
     text += d.extruded() ? ", in a period of " + in_nm(d.width_x())
                          : ", in a period of " + in_nm(d.width_x()) + " by " + in_nm(d.width_y());
     return text + (d.sides == geometry::Sides::mirror ? ", mirrored" : ", repeated");
@@ -117,13 +118,13 @@ bool is_key(const std::string& name) {
     return keys.count(name) || (cd && name != "bow cd");
 }
 
-std::string value_text(const Metric& m) {
-    return m.value ? with_error(*m.value, m.sampling_error) + unit_text(m.unit) : "none";
+std::string shown_value(const Metric& m) {
+    return m.value ? value_text(m) + unit_text(m.unit) : "none";
 }
 
 DataTable::Cell value_cell(const Metric* m) {
     if (!m) return {"", "", ""};
-    DataTable::Cell cell{value_text(*m)};
+    DataTable::Cell cell{shown_value(*m)};
     if (m->value) cell.copied = shortest(*m->value);
     return cell;
 }
