@@ -35,6 +35,11 @@ struct RayCaster::Impl {
     std::unique_ptr<QuadCaster> quads;     ///< full
     mutable CountsOfThreads counts;
 
+    Hit hit(const Vec3& origin, const Vec3& direction, int from) const {
+        return segments ? segments->trace(origin, direction, from)
+               : frusta ? frusta->trace(origin, direction, from)
+                        : quads->trace(origin, direction, from);
+    }
     std::uint64_t sum(std::atomic<std::uint64_t> Counts::*count) const {
         std::uint64_t total = 0;
         for (const Counts& c : counts)
@@ -57,9 +62,7 @@ RayCaster::RayCaster(const Domain& domain, const Surface& surface, double z_open
 RayCaster::~RayCaster() = default;
 
 Hit RayCaster::trace(const Vec3& origin, const Vec3& direction, int from_element) const {
-    const Hit hit = impl_->segments ? impl_->segments->trace(origin, direction, from_element)
-                    : impl_->frusta ? impl_->frusta->trace(origin, direction, from_element)
-                                    : impl_->quads->trace(origin, direction, from_element);
+    const Hit hit = impl_->hit(origin, direction, from_element);
     Counts& counts = impl_->counts.local();
     Counts::add(1, counts.traced);
     if (hit.kind == Hit::Kind::lost) Counts::add(1, counts.lost);
@@ -71,7 +74,7 @@ void RayCaster::trace(const RayStart* rays, std::size_t count, Hit* hits) const 
         impl_->segments->trace(rays, count, hits);
     else
         for (std::size_t n = 0; n < count; ++n)
-            hits[n] = impl_->quads->trace(rays[n].origin, rays[n].direction, rays[n].from_element);
+            hits[n] = impl_->hit(rays[n].origin, rays[n].direction, rays[n].from_element);
     Counts& counts = impl_->counts.local();
     Counts::add(count, counts.traced);
     Counts::add(
