@@ -48,7 +48,7 @@ double arrivals_change(const geometry::Domain& domain, const geometry::Surface& 
         if (other < 0) continue;
         const Vec3& n = surface.normal[e];
         const double angle =
-            domain.extruded() ? std::atan2(n.x, n.z) : std::acos(std::clamp(n.z, -1.0, 1.0));
+            domain.planar_contour() ? std::atan2(n.x, n.z) : std::acos(std::clamp(n.z, -1.0, 1.0));
         const double before = rate_at(now.rates, row, angle);
         double after = rate_at(later.rates, other, angle);
         const int beside = feet[e].partner < 0 ? -1 : later.rates.row(feet[e].partner, material);

@@ -60,6 +60,8 @@ struct Case {
     std::string file; ///< path of the case file
     geometry::Domain domain;
     double spacing_asked = 0;           ///< [nm] before rounding to a whole number of cells
+    double accuracy_cd_nm = 0;          ///< error that CDs may have; 0 = the spacing is given
+    bool assess_grid_error = false;     ///< by companion runs on coarser grids
     std::vector<std::string> materials; ///< the run's material list; ids are indices
     std::vector<char> insulator;        ///< per material: 1 = electrical insulator
     std::vector<geometry::Film> films;  ///< mask first if there is one

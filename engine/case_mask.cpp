@@ -21,7 +21,13 @@ struct MaskBuilder {
     Problems& problems;
     double widening = 0; ///< full width at the mask top less that at the bottom [nm]
 
-    double period_y() const { return result.domain.extruded() ? 0 : result.domain.width_y(); }
+    double period_x() const {
+        return result.domain.revolved() ? 2 * result.domain.width_x() : result.domain.width_x();
+    }
+    double period_y() const {
+        if (result.domain.revolved()) return period_x();
+        return result.domain.extruded() ? 0 : result.domain.width_y();
+    }
 
     void add(const Entry& item) {
         const Entry& cd = item["cd"];
@@ -32,6 +38,7 @@ struct MaskBuilder {
                 fmt::format("{} holes need symmetry: full; extruded has trench or lines", shape));
             return;
         }
+        if (result.domain.revolved() && !suits_round_cell(item, shape)) return;
         if (!cd.is_good || !item["centre"].is_good) return;
         Opening opening;
         opening.name = item["name"].text;
@@ -52,6 +59,28 @@ struct MaskBuilder {
             add_array(item, opening);
         else
             add_one(item, opening);
+    }
+
+    /// Revolved: one round hole, on the axis.
+    bool suits_round_cell(const Entry& item, const std::string& shape) {
+        const std::vector<double>& centre = item["centre"].numbers;
+        const bool off = item["centre"].is_good &&
+                         std::any_of(centre.begin(), centre.end(), [](double c) { return c != 0; });
+        if (shape != "round")
+            problems.add(item["shape"].at, item["shape"].path,
+                         shape == "elliptic"
+                             ? "an elliptic hole needs symmetry: full; revolved has one round hole"
+                             : fmt::format("{} needs symmetry: extruded or full; revolved has one "
+                                           "round hole",
+                                           shape));
+        else if (off)
+            problems.add(item["centre"].at, item["centre"].path,
+                         "revolved has its hole on the axis; off it needs symmetry: full");
+        else if (!result.mask.openings.empty())
+            problems.add(item.at, item.path, "revolved has one hole; several need symmetry: full");
+        else
+            return true;
+        return false;
     }
 
     void check_name(const Entry& name) {
@@ -85,7 +114,7 @@ struct MaskBuilder {
                                      least, least + widening));
             return false;
         }
-        const bool fits_x = fits(opening.centre_x, opening.width_x, result.domain.width_x());
+        const bool fits_x = fits(opening.centre_x, opening.width_x, period_x());
         const bool fits_y = opening.shape == Opening::Shape::trench ||
                             fits(opening.centre_y, opening.width_y, period_y());
         if (result.domain.cells_x > 1 && !(fits_x && fits_y)) {
@@ -144,7 +173,7 @@ struct MaskBuilder {
     }
 
     bool overlap(const Opening& a, const Opening& b) const {
-        const double x = apart(a.centre_x, b.centre_x, result.domain.width_x());
+        const double x = apart(a.centre_x, b.centre_x, period_x());
         const double reach_x = 0.5 * (widest(a.width_x) + widest(b.width_x));
         if (a.shape == Opening::Shape::trench || b.shape == Opening::Shape::trench)
             return x < reach_x * (1 - 1e-9);

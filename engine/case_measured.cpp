@@ -69,6 +69,10 @@ struct MeasuredReader {
             wrong(entry, "a trench is the same in every section: leave it out");
             return;
         }
+        if (result.domain.revolved()) {
+            wrong(entry, "revolved has the section through the axis; off it needs symmetry: full");
+            return;
+        }
         const std::size_t to = entry.text.find(" to ");
         std::string high = to == std::string::npos ? entry.text : entry.text.substr(to + 4);
         std::string low = to == std::string::npos ? entry.text : entry.text.substr(0, to);
@@ -101,7 +105,7 @@ struct MeasuredReader {
         if (measured["cut_offset"].is_good) cut_offset(measured["cut_offset"], contour);
         if (problems.size() != before) return;
         contour.points = read_contour(file.text, frame, problems);
-        const double side = -result.domain.x_min();
+        const double side = result.domain.x_max();
         for (const auto& point : contour.points)
             if (std::abs(point[0]) > side * (1 + 1e-9)) {
                 wrong(file,

@@ -169,6 +169,10 @@ void build_plasmas(const Entry& root, Case& result, Problems& problems) {
                 if (neutral.is_good) build_neutral(neutral, species, plasma, problems);
             build_bias(entry, result, plasma, problems);
             list_unused(entry, plasma);
+            if (result.domain.revolved() && plasma.ion_tilt_deg > 0)
+                problems.add(entry["ion_tilt"].at, entry["ion_tilt"].path,
+                             "ions that lean are not round about the axis; a hole under them "
+                             "needs symmetry: full");
         }
         result.plasmas.emplace(name, std::move(plasma));
     }

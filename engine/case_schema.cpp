@@ -152,10 +152,20 @@ Rule measured_rule() {
         "measured profile and CDs, laid over the result");
 }
 
+Rule accuracy_rule() {
+    return map_rule(
+        "accuracy",
+        {quantity_rule("cd", D::length, above_zero(),
+                       "error that every CD may have: 95 % sampling error and grid error together")
+             .required(),
+         quantity_rule("spacing", D::length, above_zero(),
+                       "where the search for the spacing starts; a run notes here what it found")},
+        "in place of spacing: grid and sampling are refined until the CDs are so sure");
+}
+
 std::vector<Rule> later_rules() {
     const char* study = "belongs into a study file, which names this case as its base: rille study";
     std::vector<Rule> rules = {
-        later_rule("accuracy", "the spacing is not chosen for you; give spacing"),
         later_rule("layout", "mask layouts are not read; write mask.openings"),
         later_rule("start", "runs start from the fresh stack; leave it out"),
         later_rule("contour", "runs start from the fresh stack; leave it out"),
@@ -166,25 +176,32 @@ std::vector<Rule> later_rules() {
 }
 
 Rule make_case_rules() {
-    Rule symmetry =
-        word_rule("symmetry", {"extruded", "full"},
-                  "extruded: trenches and lines; full: anything that repeats in x and y")
+    const Rule symmetry =
+        word_rule("symmetry", {"extruded", "revolved", "full"},
+                  "extruded: trenches and lines; revolved: one round hole about the axis of a "
+                  "round cell; full: anything that repeats in x and y")
             .required();
-    symmetry.later_words = {{"revolved", "round holes in r and z come later; use full"}};
     Rule targets = dictionary_rule("targets", target_rule().required(),
                                    "goals for measured quantities, by their names");
     Rule root = map_rule(
         "",
         {integer_rule("format", {1, 1}, "version of this form").required(),
-         text_rule("title", "one line that says what the case is").by_default("untitled"), symmetry,
+         text_rule("title", "one line that says what the case is").by_default("untitled"),
+         symmetry,
          quantities_rule("pitch", D::length, above_zero(),
-                         "width of the simulated period; full: one length or [x, y]")
+                         "width of the simulated period; revolved: diameter of the cell; full: one "
+                         "length or [x, y]")
              .required(),
          word_rule("sides", {"mirror", "periodic"}, "what lies beyond the period")
              .by_default("mirror"),
          quantity_rule("spacing", D::length, above_zero(),
-                       "grid spacing; rounded so that a whole number of cells fills the pitch")
-             .required(),
+                       "grid spacing; rounded so that a whole number of cells fills the pitch; or "
+                       "give accuracy"),
+         accuracy_rule(),
+         word_rule("grid_error", {"assessed", "not assessed"},
+                   "assessed: the same case is run on coarser grids too, which bounds the error "
+                   "that the grid makes; always so under accuracy")
+             .by_default("not assessed"),
          stack_rule(),
          map_rule("liner",
                   {text_rule("material", "what the liner is made of").required(),
@@ -209,7 +226,8 @@ Rule make_case_rules() {
                   .by_default("{}")},
              "what is measured beyond the standard list")
              .by_default("{}"),
-         targets, measured_rule(),
+         targets,
+         measured_rule(),
          map_rule("frames",
                   {quantity_rule("every", D::time, above_zero(),
                                  "time between two frames; default: ten frames a run")},

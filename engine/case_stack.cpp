@@ -13,16 +13,42 @@ namespace rille::engine {
 
 namespace {
 
-/// Number of cells along x near `asked` for which a whole number fits into y as well; 0 if none.
-int common_cells(double width_x, double width_y, double asked) {
-    const int near = std::max(1, static_cast<int>(std::lround(width_x / asked)));
-    for (int off = 0; off <= std::max(1, near / 5); ++off)
-        for (const int cells : {near + off, near - off}) {
-            if (cells < 1) continue;
-            const double rows = width_y * cells / width_x;
-            if (rows > 0.5 && std::abs(rows - std::round(rows)) < 1e-9 * rows) return cells;
-        }
-    return 0;
+/// Spacing that a search for an accuracy starts with: the narrowest opening is 16 cells wide.
+double first_spacing(const Entry& root, double width_x) {
+    constexpr double cells_across = 16;
+    double narrowest = width_x;
+    for (const Entry& opening : root["mask"]["openings"].items)
+        for (const double width : opening["cd"].numbers.empty()
+                                      ? std::vector<double>{opening["cd"].number}
+                                      : opening["cd"].numbers)
+            if (width > 0) narrowest = std::min(narrowest, width);
+    return narrowest / cells_across;
+}
+
+/// The spacing as it is given, or under `accuracy` the one to start with. False: neither is there.
+bool asked_spacing(const Entry& root, Case& result, Entry& spacing, Problems& problems) {
+    const Entry& accuracy = root["accuracy"];
+    if (accuracy.is_given == root["spacing"].is_given) {
+        problems.add(accuracy.is_given ? accuracy.at : root.at, "",
+                     accuracy.is_given
+                         ? "accuracy chooses the spacing; give one of the two"
+                         : "a case needs a spacing: spacing: 1 nm, or the error that CDs may have: "
+                           "accuracy: {cd: 0.5 nm}");
+        return false;
+    }
+    if (!accuracy.is_given) {
+        spacing = root["spacing"];
+        return spacing.is_good;
+    }
+    if (!accuracy["cd"].is_good) return false;
+    result.accuracy_cd_nm = accuracy["cd"].number;
+    spacing = accuracy["spacing"];
+    if (spacing.is_given) return spacing.is_good;
+    spacing.at = accuracy.at;
+    spacing.path = accuracy.path;
+    spacing.number = first_spacing(root, root["pitch"].numbers[0]);
+    spacing.text = format_quantity(spacing.number, Dimension::length);
+    return true;
 }
 
 void build_cells(const Entry& pitch, const Entry& spacing, Case& result, Problems& problems) {
@@ -31,14 +57,16 @@ void build_cells(const Entry& pitch, const Entry& spacing, Case& result, Problem
     const double width_y = pitch.numbers.size() > 1 ? pitch.numbers[1] : width_x;
     const double asked = spacing.number;
     result.spacing_asked = asked;
-    if (asked > width_x || (!domain.extruded() && asked > width_y)) {
+    if (asked > width_x || (!domain.planar_contour() && asked > width_y)) {
         problems.add(
             spacing.at, spacing.path,
             fmt::format("{} is wider than the pitch {}", quoted(spacing.text), pitch.text));
         return;
     }
-    const int cells = domain.extruded() ? static_cast<int>(std::lround(width_x / asked))
-                                        : common_cells(width_x, width_y, asked);
+    const double across = domain.revolved() ? 0.5 * width_x : width_x;
+    const int cells = domain.planar_contour()
+                          ? std::max(1, static_cast<int>(std::lround(across / asked)))
+                          : common_cells(width_x, width_y, asked);
     if (cells == 0) {
         const double rows = std::max(1.0, std::round(width_y / asked));
         problems.add(pitch.at, pitch.path,
@@ -50,13 +78,14 @@ void build_cells(const Entry& pitch, const Entry& spacing, Case& result, Problem
         return;
     }
     domain.cells_x = cells;
-    domain.spacing = width_x / cells;
+    domain.spacing = across / cells;
     domain.cells_y =
-        domain.extruded() ? 1 : static_cast<int>(std::lround(width_y / domain.spacing));
-    if (std::abs(domain.spacing - asked) > 1e-9 * asked)
+        domain.planar_contour() ? 1 : static_cast<int>(std::lround(width_y / domain.spacing));
+    if (std::abs(domain.spacing - asked) > 1e-9 * asked && result.accuracy_cd_nm <= 0)
         result.warnings.push_back(fmt::format("spacing {:.6g} nm instead of {}: {} cells fill the "
-                                              "pitch",
-                                              domain.spacing, spacing.text, cells));
+                                              "{}",
+                                              domain.spacing, spacing.text, cells,
+                                              domain.revolved() ? "radius" : "pitch"));
 }
 
 struct StackBuilder {
@@ -110,6 +139,17 @@ struct StackBuilder {
 
 } // namespace
 
+int common_cells(double width_x, double width_y, double asked) {
+    const int near = std::max(1, static_cast<int>(std::lround(width_x / asked)));
+    for (int off = 0; off <= std::max(1, near / 5); ++off)
+        for (const int cells : {near + off, near - off}) {
+            if (cells < 1) continue;
+            const double rows = width_y * cells / width_x;
+            if (rows > 0.5 && std::abs(rows - std::round(rows)) < 1e-9 * rows) return cells;
+        }
+    return 0;
+}
+
 int material_index(Case& result, const Entry& name) {
     auto& list = result.materials;
     if (!name.is_good) return 0;
@@ -136,16 +176,25 @@ void build_domain(const Entry& root, Case& result, Problems& problems) {
     result.title = root["title"].text;
     const Entry& symmetry = root["symmetry"];
     const Entry& pitch = root["pitch"];
-    result.domain.symmetry =
-        symmetry.text == "full" ? geometry::Symmetry::full : geometry::Symmetry::extruded;
+    result.domain.symmetry = symmetry.text == "full"       ? geometry::Symmetry::full
+                             : symmetry.text == "revolved" ? geometry::Symmetry::revolved
+                                                           : geometry::Symmetry::extruded;
     result.domain.sides =
         root["sides"].text == "periodic" ? geometry::Sides::periodic : geometry::Sides::mirror;
     if (!symmetry.is_good || !pitch.is_good) return;
-    if (result.domain.extruded() && pitch.numbers.size() > 1) {
-        problems.add(pitch.at, pitch.path, "extruded has one pitch; [x, y] is for symmetry: full");
+    if (result.domain.planar_contour() && pitch.numbers.size() > 1) {
+        problems.add(pitch.at, pitch.path,
+                     fmt::format("{} has one pitch; [x, y] is for symmetry: full", symmetry.text));
         return;
     }
-    if (root["spacing"].is_good) build_cells(pitch, root["spacing"], result, problems);
+    if (result.domain.revolved() && result.domain.sides == geometry::Sides::periodic)
+        problems.add(root["sides"].at, root["sides"].path,
+                     "a round cell does not repeat: revolved has sides: mirror; holes side by "
+                     "side need symmetry: full");
+    result.assess_grid_error = root["grid_error"].text == "assessed";
+    Entry spacing;
+    if (asked_spacing(root, result, spacing, problems))
+        build_cells(pitch, spacing, result, problems);
 }
 
 void build_stack(const Entry& root, Case& result, Problems& problems) {

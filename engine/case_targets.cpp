@@ -16,7 +16,7 @@ namespace {
 
 std::vector<MetricName> names_with(const std::vector<std::string>& labels, const Case& c) {
     const Dimension length = Dimension::length, angle = Dimension::angle;
-    const bool is_full = c.domain.symmetry == geometry::Symmetry::full;
+    const bool is_full = !c.domain.extruded(); // holes are measured in y and by area
     std::vector<MetricName> list;
     for (const std::string& label : labels) {
         for (const char* kind : {" cd", " cd_change"})

@@ -5,6 +5,7 @@
 #include "engine/case_schema.hpp"
 #include "engine/console.hpp"
 #include "engine/estimate.hpp"
+#include "engine/grid_search.hpp"
 #include "engine/metrics.hpp"
 #include "engine/output_names.hpp"
 #include "engine/problems.hpp"
@@ -102,28 +103,100 @@ bool all_met(const Metrics& metrics) {
                        [](const TargetVerdict& v) { return v.verdict == Verdict::met; });
 }
 
-/// Runs to the end with everything that is told and written on the way; the exit status.
-int follow(const Case& the_case, OutputFolder& folder, RunOutput& output,
-           const CommonOptions& options, const std::atomic<bool>& stop,
-           const std::function<RunResult(RunObserver&)>& go) {
-    const std::string started = utc_now();
-    Progress progress(std::cerr, Progress::style_for(STDERR_FILENO, options.quiet));
-    RunWatcher watcher(output, progress, stop);
-    RunResult result = go(watcher);
-    progress.finish();
-    result.record.command = options.command_line;
-    result.record.threads = threads_in_use(options);
-    result.record.started = started;
-    folder.note(output_names::report); // written last, and the record lists it
-    const Metrics metrics = output.finish(result);
-    write_run_report(folder, the_case);
-    if (options.json)
-        std::cout << metrics_json(the_case, metrics).dump(2) << '\n';
-    else if (!options.quiet)
-        std::cout << closing_text(the_case, result.record, metrics, folder.path());
-    if (result.error) std::rethrow_exception(result.error);
-    if (result.record.status == "interrupted") return interrupted_status;
-    return options.require_targets && !all_met(metrics) ? goal_not_met_status : 0;
+/// A run on the way into its folder.
+struct Outing {
+    OutputFolder& folder;
+    const CommonOptions& options;
+    const std::atomic<bool>& stop;
+    GridSearch grids;
+    Progress progress;
+    std::string started = utc_now();
+    /// Where the first main run is taken up, if it was stopped.
+    std::optional<RunState> state = {};
+
+    Outing(OutputFolder& into, const CommonOptions& common, const std::atomic<bool>& stopped,
+           GridSearch search)
+        : folder(into), options(common), stop(stopped), grids(std::move(search)),
+          progress(std::cerr, Progress::style_for(STDERR_FILENO, common.quiet)) {}
+
+    /// How companions show; the evidence is kept after each.
+    GridWatch watch() {
+        GridWatch told;
+        told.progressed = [this](const std::string& words, double share) {
+            ProgressState now;
+            now.share = share;
+            now.words = words;
+            progress.update(now);
+        };
+        told.noted = [this](const std::string& line) { progress.note(line); };
+        told.save = [this](const std::string& text) { folder.write(output_names::grids, text); };
+        return told;
+    }
+};
+
+struct MainRun {
+    RunResult result;
+    Metrics metrics;
+};
+
+/// One main run with everything that is told and written on the way.
+MainRun run_main(Outing& outing, const GridSearch::Next& next) {
+    const Case& the_case = next.the_case;
+    const bool goes_on = outing.state.has_value();
+    RunOutput output(outing.folder, the_case,
+                     goes_on ? outing.state->frames : std::vector<SeriesEntry>());
+    output.compare_with(outing.grids);
+    RunWatcher watcher(output, outing.progress, outing.stop);
+    MainRun run;
+    run.result = goes_on ? resume_case(the_case, *outing.state, watcher, outing.stop)
+                         : run_case(the_case, watcher, outing.stop);
+    outing.state.reset();
+    outing.progress.finish();
+    run.result.record.command = outing.options.command_line;
+    run.result.record.threads = threads_in_use(outing.options);
+    run.result.record.started = outing.started;
+    outing.folder.note(output_names::report); // written last, and the record lists it
+    if (run.result.record.status != "interrupted") {
+        outing.grids.add(next, measure(the_case, run.result.last), run.result.record.failure,
+                         run.result.record.wall_seconds);
+        run.result.record.accuracy = outing.grids.summary();
+        if (outing.grids.compares()) outing.watch().save(outing.grids.text());
+    }
+    run.metrics = output.finish(run.result);
+    return run;
+}
+
+/// Companions and main runs until the search is at its end; the exit status.
+int follow(Outing& outing) {
+    for (;;) {
+        const std::optional<GridSearch::Next> next =
+            run_companions(outing.grids, outing.watch(), outing.stop);
+        if (!next) {
+            outing.progress.finish();
+            if (!outing.options.quiet)
+                std::cout << "stopped among the grids that bound the error; rille resume "
+                          << outing.folder.path() << " goes on\n";
+            return interrupted_status;
+        }
+        const MainRun run = run_main(outing, *next);
+        const RunRecord& record = run.result.record;
+        const bool is_last = record.status == "interrupted" || run.result.error ||
+                             outing.grids.next().kind == GridSearch::Next::Kind::end;
+        if (!is_last) {
+            outing.progress.note("the CDs are not as sure as asked yet: a finer grid follows");
+            continue;
+        }
+        write_run_report(outing.folder, next->the_case);
+        if (outing.options.json)
+            std::cout << metrics_json(next->the_case, run.metrics).dump(2) << '\n';
+        else if (!outing.options.quiet)
+            std::cout << closing_text(next->the_case, record, run.metrics, outing.folder.path());
+        if (run.result.error) std::rethrow_exception(run.result.error);
+        if (record.status == "interrupted") return interrupted_status;
+        const bool all =
+            outing.grids.is_met() && (!outing.options.require_targets || all_met(run.metrics));
+        return all ? 0 : goal_not_met_status;
+    }
 }
 
 } // namespace
@@ -133,9 +206,9 @@ int run_command(const std::string& case_path, const std::string& folder, bool fo
     const Case the_case = load(case_path, options);
     OutputFolder out(folder,
                      force ? OutputFolder::Existing::force : OutputFolder::Existing::refuse);
-    RunOutput output(out, the_case);
-    return follow(the_case, out, output, options, stop,
-                  [&](RunObserver& watcher) { return run_case(the_case, watcher, stop); });
+    Outing outing(out, options, stop, GridSearch(the_case));
+    if (outing.grids.compares()) RunOutput(out, the_case); // what a stopped search is taken up from
+    return follow(outing);
 }
 
 int resume_command(const std::string& folder, const CommonOptions& options,
@@ -143,15 +216,20 @@ int resume_command(const std::string& folder, const CommonOptions& options,
     namespace fs = std::filesystem;
     const std::string path = (fs::path(folder) / output_names::state).string();
     OutputFolder out(folder, OutputFolder::Existing::keep);
-    if (!fs::exists(path))
-        throw OutputError(folder, "cannot take up the run",
-                          "no saved state is here; the run came to its end, or has yet to begin");
+    const std::string grids = (fs::path(folder) / output_names::grids).string();
+    const bool has_state = fs::exists(path), has_grids = fs::exists(grids);
+    const auto nothing_to_do = [&] {
+        return OutputError(folder, "cannot take up the run",
+                           "no saved state is here; the run came to its end, or has yet to begin");
+    };
+    if (!has_state && !has_grids) throw nothing_to_do();
     const Case the_case = load((fs::path(folder) / output_names::resolved_case).string(), options);
-    const RunState state = read_state(the_case, read_file(path), path);
-    RunOutput output(out, the_case, state.frames);
-    return follow(the_case, out, output, options, stop, [&](RunObserver& watcher) {
-        return resume_case(the_case, state, watcher, stop);
-    });
+    Outing outing(out, options, stop,
+                  GridSearch(the_case, has_grids ? read_file(grids) : "", grids));
+    if (!has_state && outing.grids.next().kind == GridSearch::Next::Kind::end)
+        throw nothing_to_do();
+    if (has_state) outing.state = read_state(the_case, read_file(path), path);
+    return follow(outing);
 }
 
 int check_command(const std::string& case_path, const CommonOptions& options) {
@@ -190,9 +268,10 @@ int measure_command(const std::string& folder, const CommonOptions& options) {
     run.frames = some_frames(folder);
     run.record = run_record(folder);
     run.can_be_resumed = fs::exists(fs::path(folder) / output_names::state);
-    const Metrics metrics =
-        measure(the_case, read_vtp(the_case, run.frames.back()),
-                measured_after(the_case, run.frames, run.record), !run.is_stopped());
+    Metrics metrics = measure(the_case, read_vtp(the_case, run.frames.back()),
+                              measured_after(the_case, run.frames, run.record), !run.is_stopped());
+    const std::string grids = (fs::path(folder) / output_names::grids).string();
+    if (fs::exists(grids)) GridSearch(the_case, read_file(grids), grids).assess(the_case, metrics);
     if (options.json)
         std::cout << metrics_json(the_case, metrics).dump(2) << '\n';
     else

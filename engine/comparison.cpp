@@ -62,7 +62,7 @@ Nearest nearest(const Section& section, const Surface& surface, const Point& p) 
             if (distance >= best.distance) continue;
             best.distance = distance;
             best.element = line.element[i];
-            const geometry::Vec3 n = surface.normal[best.element];
+            const geometry::Vec3 n = normal_of(surface, line, i);
             const double in_plane = std::hypot(n.x, n.z);
             const bool in_gas = rx * n.x + rz * n.z >= 0;
             best.slope = in_plane > 1e-6 ? (in_gas ? -1 : 1) / in_plane : 0;
@@ -107,7 +107,7 @@ double width_error(const Section& section, const SurfaceState& state, double z,
             const Point &a = line.points[i], &b = line.points[i + 1];
             if ((a[1] >= z) == (b[1] >= z)) continue;
             const double x = a[0] + (b[0] - a[0]) * (z - a[1]) / (b[1] - a[1]);
-            const double slant = state.surface.normal[line.element[i]].x;
+            const double slant = normal_of(state.surface, line, i).x;
             if (std::abs(slant) < 1e-6) continue;
             if (x == found.left_nm) width.elements.emplace_back(line.element[i], -1 / slant);
             if (x == found.right_nm) width.elements.emplace_back(line.element[i], 1 / slant);
@@ -143,7 +143,7 @@ ContourComparison compare_contour(const Case& c, const SurfaceState& state,
     const auto opening =
         std::find_if(c.mask.openings.begin(), c.mask.openings.end(),
                      [&](const geometry::Opening& o) { return o.name == contour.feature; });
-    const double y = c.domain.extruded() ? 0 : opening->centre_y + cut;
+    const double y = c.domain.planar_contour() ? 0 : opening->centre_y + cut;
     const Section section = vertical_section(c.domain, state.surface, y);
     const double step = 0.5 * c.domain.spacing;
     measure_distances(contour.points, section, state, step, result);

@@ -94,6 +94,7 @@ std::string closing_text(const Case& c, const RunRecord& record, const Metrics& 
         text += fmt::format("  {}: {} to {} s, {}\n", step.name, rounded(step.start_s),
                             rounded(step.end_s), step.reason);
     text += metrics_table(c, metrics);
+    if (!record.accuracy.empty()) text += record.accuracy + "\n";
     for (const auto* list : {&c.warnings, &record.warnings})
         for (const std::string& warning : *list)
             text += "warning: " + warning + "\n";

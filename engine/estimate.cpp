@@ -18,19 +18,21 @@ constexpr double pi = 3.14159265358979;
 constexpr double pictures_mb = 25; // what drawing and writing the result needs beside the run
 constexpr int frames_a_run = 10;
 
-/// Area of the walls [nm^2; extruded: nm] per nm of their height.
+/// Area of the walls [nm^2; of a contour: nm] per nm of their height.
 double wall_perimeter(const Case& the_case) {
     double sum = 0;
     for (const geometry::Opening& opening : the_case.mask.openings)
-        sum += the_case.domain.extruded() ? 2 : 0.5 * pi * (opening.width_x + opening.width_y);
+        sum += the_case.domain.extruded()   ? 2
+               : the_case.domain.revolved() ? 1
+                                            : 0.5 * pi * (opening.width_x + opening.width_y);
     return sum;
 }
 
-/// Elements per area of a wall [1/nm^2; extruded: 1/nm]: one for each grid face that the contour
-/// crosses, which on a round wall is the mean of |cos| + |sin|.
+/// Elements per area of a wall [1/nm^2; of a contour: 1/nm]: one for each grid face that the
+/// contour crosses, which on a round wall is the mean of |cos| + |sin|.
 double elements_per_area(const geometry::Domain& domain) {
     const double h = domain.spacing;
-    return domain.extruded() ? 1 / h : 4 / (pi * h * h);
+    return domain.planar_contour() ? 1 / h : 4 / (pi * h * h);
 }
 
 double seconds_of(const Timings& t) {
@@ -81,7 +83,7 @@ Estimate estimate_run(const Case& the_case) {
 std::string estimate_text(const Case& the_case, const Estimate& e) {
     std::ostringstream text;
     text << "# grid: " << the_case.domain.cells_x;
-    if (!the_case.domain.extruded()) text << " x " << the_case.domain.cells_y;
+    if (!the_case.domain.planar_contour()) text << " x " << the_case.domain.cells_y;
     text << " cells of " << the_case.domain.spacing << " nm across, about " << e.voxels
          << " voxels and " << e.elements << " surface elements at the end\n"
          << "# rays: " << the_case.rays_per_element << " per element and refresh, "

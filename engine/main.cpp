@@ -6,6 +6,7 @@
 #include "engine/version.hpp"
 #include "engine/words.hpp"
 #include "geometry/check.hpp"
+#include "geometry/keep_memory.hpp"
 
 #include <CLI/CLI.hpp>
 #include <csignal>
@@ -255,6 +256,7 @@ int dispatch(int argc, char** argv) {
 } // namespace
 
 int main(int argc, char** argv) {
+    geometry::keep_freed_memory();
     try {
         return dispatch(argc, argv);
     } catch (const engine::InputError& error) {

@@ -17,6 +17,10 @@ struct Metric {
     double sampling_error = 0; ///< 95 %, same unit; 0 where nothing is sampled
     std::string definition;
     std::string note;
+    std::optional<double> grid_error = {}; ///< bound, same unit; empty where it was not assessed
+
+    /// What both errors make together: the root of the sum of their squares.
+    double error() const;
 };
 
 /// Everything measured at the end of a recipe step.

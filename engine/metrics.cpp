@@ -271,7 +271,7 @@ std::optional<Measured> FeatureMeasurement::mask_left(const Case& c, const Surfa
                                                       const FeatureSite& site) {
     const double edge_left = site.centre_x - 0.5 * site.width_x;
     const double edge_right = site.centre_x + 0.5 * site.width_x;
-    double far_left = c.domain.x_min(), far_right = -c.domain.x_min();
+    double far_left = -c.domain.x_max(), far_right = c.domain.x_max();
     for (const FeatureSite& other : feature_sites(c)) {
         const bool same_row =
             !other.round || std::fabs(other.centre_y - site.centre_y) < 0.5 * other.width_y;

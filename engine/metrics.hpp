@@ -53,6 +53,7 @@ struct Metrics {
     /// came to them.
     std::vector<StepMetrics> after;
 
+    bool has_grid_errors() const;
     /// The metric of that name (of that feature if given), or null.
     const Metric* find(const std::string& name, const std::string& feature = "") const;
 };
@@ -91,6 +92,10 @@ Verdict judge(double value, double error, const Target&);
 std::vector<TargetVerdict> judge_targets(const Case&, const Metrics&);
 
 const char* verdict_name(Verdict);
+/// "60.1 ± 0.3", with a grid error "60.1 ± 0.3 ± 0.5": of a metric that has a value.
+std::string value_text(const Metric&);
+/// What stands behind ± in value_text, as a line below a table.
+std::string errors_text(const Metrics&);
 nlohmann::json metrics_json(const Case&, const Metrics&);
 /// The table for the terminal; `colour` adds none but the verdict's own words.
 std::string metrics_table(const Case&, const Metrics&);

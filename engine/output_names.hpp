@@ -9,6 +9,8 @@ inline constexpr const char* record = "run.json";
 inline constexpr const char* history = "history.csv";
 inline constexpr const char* profile = "profile.csv";
 inline constexpr const char* metrics = "metrics.json";
+/// The same case on other grids, where grid errors are assessed.
+inline constexpr const char* grids = "grids.json";
 /// The measured contour against the front, where the case names one.
 inline constexpr const char* comparison = "comparison.csv";
 inline constexpr const char* series = "front.pvd";
@@ -25,8 +27,8 @@ inline constexpr const char* frames = "frames";
 inline constexpr const char* inputs = "inputs"; ///< copies of the files that the case names
 /// Left while a run is not at its end: what `resume` takes up.
 inline constexpr const char* state = "state.bin";
-inline constexpr const char* all[] = {resolved_case, record,     history,   profile,
-                                      metrics,       series,     level_set, picture_svg,
-                                      picture_png,   sheath_svg, sheath_png};
+inline constexpr const char* all[] = {resolved_case, record,     history,    profile,
+                                      metrics,       series,     level_set,  picture_svg,
+                                      picture_png,   sheath_svg, sheath_png, grids};
 
 } // namespace rille::engine::output_names

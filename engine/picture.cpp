@@ -30,8 +30,8 @@ std::vector<PictureFront> chosen_fronts(const std::vector<PictureFront>& all) {
 
 View make_view(const PictureContext& p) {
     View v;
-    v.x_min = p.c.domain.x_min();
-    v.x_max = -p.c.domain.x_min();
+    v.x_min = -p.c.domain.x_max();
+    v.x_max = p.c.domain.x_max();
     double low = 0, high = 0;
     const auto include = [&](const Section& section) {
         for (const SectionLine& line : section)
@@ -92,7 +92,7 @@ double draw_measured(Svg& svg, const PictureContext& p, double x, double y) {
         const std::string unit = m.unit == "1" ? "" : m.unit == "deg" ? "°" : " " + m.unit;
         svg.text(x, at, several ? m.feature + ": " + name : name,
                  {11.5, Anchor::start, false, "#222222", false, 0});
-        svg.text(x + panel_width, at, with_error(*m.value, m.sampling_error) + unit,
+        svg.text(x + panel_width, at, value_text(m) + unit,
                  {11.5, Anchor::end, false, "#222222", false, 0});
         at += 17;
     }
@@ -104,7 +104,9 @@ double draw_measured(Svg& svg, const PictureContext& p, double x, double y) {
                  {11.5, Anchor::end, false, "#222222", false, 0});
         at += 17;
     }
-    svg.text(x, at + 2, "± 95 % sampling error; grid error not assessed",
+    svg.text(x, at + 2,
+             p.metrics.has_grid_errors() ? "± 95 % sampling error ± bound on grid error"
+                                         : "± 95 % sampling error; grid error not assessed",
              {10, Anchor::start, false, "#555555", false, 0});
     return at + 16 - y;
 }
@@ -224,7 +226,9 @@ double fitting(const std::string& text, double size, bool bold, double width) {
 std::string subtitle(const PictureContext& p) {
     std::string text = "after " + time_text(p.last.time_s) + unfinished_words(p.metrics);
     if (!p.c.chemistry.empty()) text += " · " + p.c.chemistry;
-    if (!p.c.domain.extruded()) text += " · section at y = " + rounded(section_y(p.c), 20) + " nm";
+    if (p.c.domain.revolved()) text += " · section through the axis";
+    if (!p.c.domain.planar_contour())
+        text += " · section at y = " + rounded(section_y(p.c), 20) + " nm";
     return text + " · spacing " + rounded(p.c.domain.spacing) + " nm";
 }
 
@@ -251,7 +255,7 @@ std::vector<Draw> panel_parts(const PictureContext& p) {
             [&p](Svg& svg, double x, double y) { return draw_targets(svg, p, x, y); });
     parts.emplace_back([&p](Svg& svg, double x, double y) { return draw_materials(svg, p, x, y); });
     parts.emplace_back([&p](Svg& svg, double x, double y) { return draw_times(svg, p, x, y); });
-    if (!p.c.domain.extruded())
+    if (!p.c.domain.planar_contour())
         parts.emplace_back([&p](Svg& svg, double x, double y) { return draw_plan(svg, p, x, y); });
     return parts;
 }
@@ -284,7 +288,8 @@ double round_length(double value) {
 }
 
 double section_y(const Case& c) {
-    return c.domain.extruded() || c.mask.openings.empty() ? 0 : c.mask.openings.front().centre_y;
+    return c.domain.planar_contour() || c.mask.openings.empty() ? 0
+                                                                : c.mask.openings.front().centre_y;
 }
 
 std::string picture_svg(const Case& c, const std::vector<PictureFront>& fronts,

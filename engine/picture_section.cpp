@@ -24,7 +24,7 @@ std::string fill(const std::string& colour) {
 Points inward(const SectionLine& line, const geometry::Surface& s) {
     Points direction(line.points.size(), {0, 0});
     for (std::size_t i = 0; i < line.element.size(); ++i) {
-        const geometry::Vec3 n = s.normal[line.element[i]];
+        const geometry::Vec3 n = normal_of(s, line, i);
         for (const std::size_t point : {i, i + 1}) {
             direction[point][0] -= n.x;
             direction[point][1] -= n.z;
@@ -100,7 +100,7 @@ private:
 std::string feature_metric(const PictureContext& p, const std::string& name,
                            const std::string& feature) {
     const Metric* metric = p.metrics.find(name, feature);
-    return metric && metric->value ? with_error(*metric->value, metric->sampling_error) : "";
+    return metric && metric->value ? value_text(*metric) : "";
 }
 
 void draw_cd_mark(Svg& svg, const View& v, const PictureContext& p,

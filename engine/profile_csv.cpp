@@ -46,8 +46,9 @@ std::string name_at(const std::vector<std::string>& names, const std::vector<int
 }
 
 std::string header(const Case& c, const SurfaceState& state) {
-    std::string text = c.domain.extruded()
-                           ? "x_nm,z_nm,arc_length_nm,normal_deg,length_nm,chain"
+    std::string text = c.domain.extruded() ? "x_nm,z_nm,arc_length_nm,normal_deg,length_nm,chain"
+                       : c.domain.revolved()
+                           ? "r_nm,z_nm,arc_length_nm,normal_deg,length_nm,area_nm2,chain"
                            : "x_nm,y_nm,z_nm,normal_x_1,normal_y_1,normal_z_1,area_nm2,chain";
     text += ",material,film";
     for (const int material : state.grown.material)
@@ -64,9 +65,9 @@ std::string place(const Case& c, const SurfaceState& state, const std::vector<do
     const geometry::Vec3 p = s.centre[e], n = s.normal[e];
     std::string text = shortest(p.x);
     const auto add = [&](double value) { text += "," + shortest(value); };
-    if (!c.domain.extruded()) add(p.y);
+    if (!c.domain.planar_contour()) add(p.y);
     add(p.z);
-    if (c.domain.extruded()) {
+    if (c.domain.planar_contour()) {
         add(arc[e]);
         add(std::atan2(n.x, n.z) * degrees);
     } else {
@@ -74,6 +75,7 @@ std::string place(const Case& c, const SurfaceState& state, const std::vector<do
         add(n.y);
         add(n.z);
     }
+    if (c.domain.revolved()) add(s.length(static_cast<int>(e)));
     add(s.area[e]);
     return text + "," + std::to_string(s.chain.empty() ? 0 : s.chain[e]);
 }
@@ -95,8 +97,9 @@ std::vector<double> arc_length(const geometry::Surface& s) {
     for (std::size_t e = 0; e < s.size(); ++e) {
         // Elements of a chain are stored in walking order.
         if (e > 0 && !s.chain.empty() && s.chain[e] != s.chain[e - 1]) end = 0;
-        arc[e] = end + 0.5 * s.area[e];
-        end += s.area[e];
+        const double length = s.length(static_cast<int>(e));
+        arc[e] = end + 0.5 * length;
+        end += length;
     }
     return arc;
 }
@@ -106,7 +109,7 @@ std::string profile_csv(const Case& c, const SurfaceState& state) {
     for (const auto& film : c.films)
         films.push_back(film.name);
     const std::vector<double> arc =
-        c.domain.extruded() ? arc_length(state.surface) : std::vector<double>();
+        c.domain.planar_contour() ? arc_length(state.surface) : std::vector<double>();
     const std::vector<double> errors = element_errors(state);
     std::string text = header(c, state);
     for (std::size_t e = 0; e < state.surface.size(); ++e) {

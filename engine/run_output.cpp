@@ -102,6 +102,7 @@ Metrics RunOutput::finish(const RunResult& result, const RunParts& parts) {
     if (parts.profile) folder_.write(output_names::profile, profile_csv(case_, result.last));
     Metrics metrics =
         measure(case_, result.last, result.after, is_at_its_end(result.record.status));
+    if (grids_ && metrics.is_final) grids_->assess(case_, metrics);
     folder_.write(output_names::metrics, json_text(metrics_json(case_, metrics)));
     if (parts.profile && !metrics.comparison.contours.empty())
         folder_.write(output_names::comparison, comparison_csv(case_, metrics.comparison));

@@ -1,6 +1,7 @@
 // SPDX-License-Identifier: Apache-2.0
 #pragma once
 
+#include "engine/grid_search.hpp"
 #include "engine/metrics.hpp"
 #include "engine/output_folder.hpp"
 #include "engine/picture.hpp"
@@ -33,6 +34,8 @@ public:
     RunOutput(OutputFolder&, const Case&, const std::vector<SeriesEntry>& frames,
               const RunParts& = {});
 
+    /// Grid errors of the metrics come from this search, which must outlive this object.
+    void compare_with(const GridSearch& grids) { grids_ = &grids; }
     /// Writes the state from which the run can be taken up, with the frames so far.
     void save(RunState);
     /// Writes one frame and renews the series file. Times must not fall; the first is the start. A
@@ -55,6 +58,7 @@ private:
     OutputFolder& folder_;
     const Case& case_;
     RunParts parts_;
+    const GridSearch* grids_ = nullptr;
     std::vector<SeriesEntry> series_;
     std::vector<PictureFront> fronts_;
 };

@@ -117,6 +117,7 @@ json record_json(const Case& c, const RunRecord& record, const std::vector<std::
               {"lost_rays", record.lost_rays},
               {"lost_share", lost},
               {"redistance_shift_cells", record.redistance_shift}}},
+            {"accuracy", record.accuracy},
             {"files", files},
             {"caution", caution}};
 }

@@ -34,6 +34,7 @@ struct RunRecord {
     double wall_seconds = 0;
     std::vector<PhaseTime> timings;
     std::vector<StepOutcome> steps;
+    std::string accuracy;              ///< what a search for a grid came to; empty without one
     std::vector<std::string> warnings; ///< raised during the run; the case's own are added
     double simulated_s = 0;
     int resumed = 0;                      ///< how often the run was taken up after a stop

@@ -23,7 +23,7 @@ bool joined(const Surface& s, int e) {
     const int before = s.previous[e];
     if (before < 0) return false;
     const Vec3 gap = s.vertices[s.corners[e][0]] - s.vertices[s.corners[before][1]];
-    return gap.length() <= 1e-9 * (1 + s.area[e]);
+    return gap.length() <= 1e-9 * (1 + s.length(e));
 }
 
 SectionLine walk(const Surface& s, int start, std::vector<char>& seen) {
@@ -50,6 +50,37 @@ Section chains(const Surface& s) {
     for (int e = 0; e < n; ++e)
         if (!seen[e]) section.push_back(walk(s, e, seen));
     return section;
+}
+
+/// The line's image about x = 0, walked with the gas on the same side.
+SectionLine image_of(const SectionLine& line) {
+    SectionLine image;
+    for (auto p = line.points.rbegin(); p != line.points.rend(); ++p)
+        image.points.push_back({-(*p)[0], (*p)[1]});
+    image.element.assign(line.element.rbegin(), line.element.rend());
+    image.closed = line.closed;
+    image.images = image.element.size();
+    return image;
+}
+
+/// The section through the axis of revolution. A line that starts on the axis goes on from its
+/// image, one that starts and ends there closes with it.
+Section both_halves(const Section& half) {
+    Section whole;
+    for (const SectionLine& line : half) {
+        SectionLine image = image_of(line);
+        const bool starts = line.points.front()[0] == 0, ends = line.points.back()[0] == 0;
+        if (line.closed || !starts) { // apart from the axis, or the two walked towards it
+            whole.push_back(std::move(image));
+            whole.push_back(line);
+            continue;
+        }
+        image.points.insert(image.points.end(), line.points.begin() + 1, line.points.end());
+        image.element.insert(image.element.end(), line.element.begin(), line.element.end());
+        image.closed = ends;
+        whole.push_back(std::move(image));
+    }
+    return whole;
 }
 
 /// Cuts triangles by a plane. Cut points lie on mesh edges and are known by the edge, so pieces
@@ -144,8 +175,15 @@ private:
 } // namespace
 
 Section vertical_section(const geometry::Domain& domain, const Surface& s, double y) {
+    if (domain.revolved()) return both_halves(chains(s));
     if (domain.extruded()) return chains(s);
     return Cutter(s, 1, y, 0, 2).cut();
+}
+
+geometry::Vec3 normal_of(const Surface& s, const SectionLine& line, std::size_t i) {
+    geometry::Vec3 n = s.normal[line.element[i]];
+    if (i < line.images) n.x = -n.x;
+    return n;
 }
 
 Section horizontal_section(const Surface& s, double z) {

@@ -276,8 +276,7 @@ Simulation::Trial Simulation::heun(double time_limit) {
             for (auto& field : thickness)
                 fields.push_back(&field);
             geometry::carry_fields(surface_, predicted.surface, predicted.report.moved,
-                                   case_.domain.width_x(), case_.domain.width_y(),
-                                   case_.domain.sides == geometry::Sides::periodic, fields);
+                                   case_.domain, fields);
             for (std::size_t f = 0; f < films.thickness.size(); ++f)
                 films.thickness[f] = thickness[f].value;
         }
@@ -360,9 +359,7 @@ void Simulation::accept(Trial&& trial, const fluxes::SurfaceStep& step) {
             fields.push_back(&field);
         for (auto& field : error_fields_)
             fields.push_back(&field);
-        geometry::carry_fields(surface_, trial.surface, trial.report.moved, case_.domain.width_x(),
-                               case_.domain.width_y(),
-                               case_.domain.sides == geometry::Sides::periodic, fields);
+        geometry::carry_fields(surface_, trial.surface, trial.report.moved, case_.domain, fields);
         for (std::size_t f = 0; f < thickness.size(); ++f)
             films_.thickness[f] = std::move(thickness[f].value);
     }

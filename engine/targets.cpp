@@ -77,8 +77,8 @@ TargetVerdict judge_metric(const Case& c, const Target& target, const Metric& me
     result.sampling_error = metric.sampling_error;
     result.unit = metric.unit;
     if (metric.value) {
-        result.by_numbers = judge(*metric.value, metric.sampling_error, target);
-        result.reason = with_error(*metric.value, metric.sampling_error) +
+        result.by_numbers = judge(*metric.value, metric.error(), target);
+        result.reason = with_error(*metric.value, metric.error()) +
                         (metric.unit == "1" ? "" : " " + metric.unit);
         if (result.by_numbers == Verdict::undecided) result.reason += " straddles the limit";
     } else {
@@ -116,6 +116,7 @@ json metric_json(const Metric& m) {
                   {"sampling_error", m.sampling_error},
                   {"grid_error", "not assessed"},
                   {"definition", m.definition}};
+    if (m.grid_error) entry["grid_error"] = *m.grid_error;
     if (m.value)
         entry["value"] = *m.value;
     else
@@ -170,6 +171,31 @@ std::string with_unit(const std::string& value, const std::string& unit) {
 }
 
 } // namespace
+
+double Metric::error() const {
+    return std::hypot(sampling_error, grid_error.value_or(0));
+}
+
+bool Metrics::has_grid_errors() const {
+    return std::any_of(metrics.begin(), metrics.end(),
+                       [](const Metric& m) { return m.grid_error.has_value(); });
+}
+
+std::string errors_text(const Metrics& metrics) {
+    return metrics.has_grid_errors()
+               ? "± 95 % sampling error, then the bound on the error of the grid; parameter "
+                 "uncertainty: not assessed"
+               : "± 95 % sampling error; grid error and parameter uncertainty: not assessed";
+}
+
+std::string value_text(const Metric& m) {
+    if (!m.grid_error) return with_error(*m.value, m.sampling_error);
+    const double error = m.error();
+    const auto part = [&](double of) {
+        return of > 0 && of < 0.005 ? std::string("<0.01") : rounded(of, error);
+    };
+    return rounded(*m.value, error) + " ± " + part(m.sampling_error) + " ± " + part(*m.grid_error);
+}
 
 const Metric* Metrics::find(const std::string& name, const std::string& feature) const {
     const auto found = std::find_if(metrics.begin(), metrics.end(), [&](const Metric& m) {
@@ -244,9 +270,12 @@ json metrics_json(const Case& c, const Metrics& metrics) {
     json all = {{"title", c.title},
                 {"time_s", metrics.time_s},
                 {"final", metrics.is_final},
-                {"errors",
-                 "sampling_error: 95 %, from 8 batches; grid error and the uncertainty of the "
-                 "parameters are not assessed"},
+                {"errors", metrics.has_grid_errors()
+                               ? "sampling_error: 95 %, from 8 batches; grid_error: a bound, from "
+                                 "the same case on coarser grids; the uncertainty of the "
+                                 "parameters is not assessed"
+                               : "sampling_error: 95 %, from 8 batches; grid error and the "
+                                 "uncertainty of the parameters are not assessed"},
                 {"metrics", list},
                 {"clearing", clearing},
                 {"targets", targets},
@@ -267,9 +296,8 @@ std::string metrics_table(const Case& c, const Metrics& metrics) {
         width = std::max(width, label(m).size());
     std::string text;
     for (const Metric& m : metrics.metrics) {
-        const std::string value = m.value
-                                      ? with_unit(with_error(*m.value, m.sampling_error), m.unit)
-                                      : "-  (" + m.note + ")";
+        const std::string value =
+            m.value ? with_unit(value_text(m), m.unit) : "-  (" + m.note + ")";
         text += "  " + padded(label(m), width + 2) + value + "\n";
     }
     for (const Metrics::Clearing& entry : metrics.clearing)
@@ -277,7 +305,7 @@ std::string metrics_table(const Case& c, const Metrics& metrics) {
                 (entry.cleared ? "cleared" : rounded(entry.remaining_nm) + " nm left") + "\n";
     for (const TargetVerdict& v : metrics.targets)
         text += "  " + padded(verdict_name(v.verdict), 10) + v.target + "  (" + v.reason + ")\n";
-    return text + "  ± 95 % sampling error; grid error and parameter uncertainty: not assessed\n";
+    return text + "  " + errors_text(metrics) + "\n";
 }
 
 } // namespace rille::engine

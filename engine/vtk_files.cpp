@@ -100,7 +100,7 @@ std::string cell_data(const Case& c, const SurfaceState& state) {
 std::string vtp_text(const Case& c, const SurfaceState& state) {
     const geometry::Surface& s = state.surface;
     const std::string count = std::to_string(s.size());
-    const bool lines = c.domain.extruded();
+    const bool lines = c.domain.planar_contour();
     const std::string kind = lines ? "Lines" : "Polys";
     std::string text = "<?xml version=\"1.0\"?>\n"
                        "<VTKFile type=\"PolyData\" version=\"1.0\" byte_order=\"LittleEndian\" "

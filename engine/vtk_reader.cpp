@@ -136,7 +136,7 @@ SurfaceState read_tree(const Case& c, const Tree& root) {
     const Tree& piece = data.get_child("Piece");
     state.surface.vertices =
         vectors(decoded<double>(named_array(piece.get_child("Points"), "Points")));
-    read_corners(piece.get_child(c.domain.extruded() ? "Lines" : "Polys"), state.surface);
+    read_corners(piece.get_child(c.domain.planar_contour() ? "Lines" : "Polys"), state.surface);
     for (const auto& child : piece.get_child("CellData"))
         if (child.first == "DataArray")
             read_cell_array(c, child.second.get<std::string>("<xmlattr>.Name"), child.second,

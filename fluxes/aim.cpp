@@ -76,7 +76,10 @@ void OpeningAims::flood(Level& level) const {
         Aim aim{domain_.x_min() + i0 * h, domain_.x_min() + (i1 + 1) * h, domain_.y_min() + j0 * h,
                 domain_.y_min() + (j1 + 1) * h, level.z};
         aim.x0 -= 0.5 * h, aim.x1 += 0.5 * h, aim.y0 -= 0.5 * h, aim.y1 += 0.5 * h;
-        widen_at_mirrors(aim);
+        if (domain_.revolved())
+            aim = {-aim.x1, aim.x1, -aim.x1, aim.x1, aim.z};
+        else
+            widen_at_mirrors(aim);
         level.openings.push_back(aim);
         everything.insert(everything.end(), queue.begin(), queue.end());
     }

@@ -16,9 +16,10 @@ struct Aim {
     double area() const { return (x1 - x0) * (y1 - y0); }
 };
 
-/// Where the openings are, seen from above (full symmetry): a height map of the surface cut at a
+/// Where the openings are, seen from above (full, revolved): a height map of the surface cut at a
 /// few levels, each cut split into connected openings. Guides the sampling of the sky from deep
-/// points; it may be wrong anywhere without harm to the expected result.
+/// points; it may be wrong anywhere without harm to the expected result. Revolved: the
+/// square about the opening's outer circle.
 class OpeningAims {
 public:
     OpeningAims(const geometry::Domain&, const geometry::RayCaster&);

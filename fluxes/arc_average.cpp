@@ -71,12 +71,12 @@ void add_piece(const Surface& surface, const Piece& piece, double window,
     const int n = static_cast<int>(piece.elements.size());
     std::vector<double> s(n + 1, 0.0);
     for (int i = 0; i < n; ++i)
-        s[i + 1] = s[i] + surface.area[piece.elements[i]];
+        s[i + 1] = s[i] + surface.length(piece.elements[i]);
     const double all = s[n];
     if (all <= window || n == 1) { // shorter than the window: one average
         for (int e : piece.elements)
             for (int f : piece.elements)
-                rows[e].push_back({f, surface.area[f] / all});
+                rows[e].push_back({f, surface.length(f) / all});
         return;
     }
     const auto weight = [&](int i, int j) {
@@ -169,14 +169,52 @@ void add_rows(const Surface& surface, std::vector<std::vector<ArcAverage::Part>>
     }
 }
 
+/// Turns weights that keep sums of value times length into ones that keep sums of value times area.
+/// Times the lengths they are the same both ways; K_ef = L_e w_ef r_e r_f stays so, and x_e K_ef
+/// x_f with sums over f equal to the areas does both: the scaling of a symmetric matrix to given
+/// row sums (Sinkhorn and Knopp 1967, from memory). Near the axis, where areas change fast, this
+/// still reaches as far as elsewhere.
+void weigh_by_area(const Surface& surface, std::vector<std::vector<ArcAverage::Part>>& rows) {
+    constexpr int rounds = 60;
+    const std::size_t count = surface.size();
+    std::vector<double> scale(count, 1.0), next(count);
+    for (std::size_t e = 0; e < count; ++e)
+        for (ArcAverage::Part& part : rows[e])
+            part.weight *=
+                surface.area[e] * surface.area[part.element] / surface.length(part.element);
+    const auto sum_of = [&](std::size_t e) {
+        double sum = 0;
+        for (const ArcAverage::Part& part : rows[e])
+            sum += part.weight * scale[part.element];
+        return sum;
+    };
+    for (int round = 0; round < rounds; ++round) {
+        for (std::size_t e = 0; e < count; ++e) {
+            const double sum = sum_of(e);
+            next[e] = sum > 0 ? std::sqrt(scale[e] * surface.area[e] / sum) : scale[e];
+        }
+        scale.swap(next);
+    }
+    for (std::size_t e = 0; e < count; ++e) {
+        double rest = 1; // what the rounds have left, to the element itself
+        for (ArcAverage::Part& part : rows[e]) {
+            part.weight *= scale[e] * scale[part.element] / surface.area[e];
+            rest -= part.weight;
+        }
+        for (ArcAverage::Part& part : rows[e])
+            if (part.element == static_cast<int>(e)) part.weight += rest;
+    }
+}
+
 } // namespace
 
 ArcAverage arc_average(const Domain& domain, const Surface& surface) {
     const int count = static_cast<int>(surface.size());
     std::vector<std::vector<ArcAverage::Part>> rows(count);
-    if (domain.extruded()) {
+    if (domain.planar_contour()) {
         for (const Piece& piece : smooth_pieces(surface))
             add_piece(surface, piece, window_cells * domain.spacing, rows);
+        if (domain.revolved()) weigh_by_area(surface, rows);
     } else {
         add_rows(surface, rows);
     }

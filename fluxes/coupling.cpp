@@ -30,7 +30,7 @@ double norm(const Vector& v) {
 /// The equations in units of the open fluxes, species after species: x[k * n + e].
 class Problem {
 public:
-    Problem(const Exchange& exchange, std::vector<double> open, const StickingOf& sticking)
+    Problem(const ExchangeOperator& exchange, std::vector<double> open, const StickingOf& sticking)
         : exchange_(exchange), open_(std::move(open)), sticking_(sticking), n_(exchange.size()),
           species_(open_.size()) {}
 
@@ -123,7 +123,7 @@ private:
         }
     }
 
-    const Exchange& exchange_;
+    const ExchangeOperator& exchange_;
     std::vector<double> open_;
     const StickingOf& sticking_;
     std::size_t n_, species_;
@@ -248,7 +248,7 @@ Vector arrivals_at_bare(const Problem& p) {
 
 } // namespace
 
-CoupledArrivals solve_coupled(const Exchange& exchange, const std::vector<double>& open,
+CoupledArrivals solve_coupled(const ExchangeOperator& exchange, const std::vector<double>& open,
                               const StickingOf& sticking,
                               const std::vector<std::vector<double>>& guess) {
     const Problem p(exchange, open, sticking);
@@ -283,6 +283,10 @@ CoupledArrivals solve_coupled(const Exchange& exchange, const std::vector<double
         Vector s;
         p.evaluate(b, state.x, s, nullptr);
         const Vector defect = p.defect(b, state.x, s);
+        if (norm(defect) < flux_tolerance * scale) { // no ray and no ion of its own
+            result.batch_flux[b] = result.flux;
+            return;
+        }
         Vector step, loss = state.loss;
         if (!p.newton_step(b, loss, defect, 1e-4, step)) {
             // Next to a change between two steady states: the answer at fixed sticking stands in.

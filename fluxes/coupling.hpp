@@ -1,7 +1,7 @@
 // SPDX-License-Identifier: Apache-2.0
 #pragma once
 
-#include "fluxes/exchange.hpp"
+#include "fluxes/exchange_operator.hpp"
 #include "fluxes/mechanism.hpp"
 
 #include <array>
@@ -38,7 +38,7 @@ struct CoupledArrivals {
 /// the sticking of the start comes to rest when it relaxes in time towards what the kinetics
 /// answers. `open`: flux of every species in the open.
 /// Throws NumericsError if the relaxation does not come to rest.
-CoupledArrivals solve_coupled(const Exchange&, const std::vector<double>& open,
+CoupledArrivals solve_coupled(const ExchangeOperator&, const std::vector<double>& open,
                               const StickingOf& sticking,
                               const std::vector<std::vector<double>>& guess);
 

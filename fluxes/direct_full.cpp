@@ -72,7 +72,7 @@ private:
 /// Ions that arrive: where they come from and what they weigh.
 struct Arrival {
     double up = 0;     ///< component of the reverse direction along +z
-    double along = 0;  ///< and along the horizontal part of the element's normal
+    double along = 0;  ///< and along the horizontal part of the element's normal; revolved: along x
     double weight = 0; ///< share of the flux / up
     double energy = 0;
     int batch = 0;
@@ -181,7 +181,7 @@ private:
         DirectIons::SeenRay* seen_rays =
             gathered_.seen[group].data() + std::size_t(e) * batches * per_batch_;
         const Vec3 mean = normal_[e];
-        const double flat = std::hypot(mean.x, mean.y);
+        const double flat = domain_.revolved() ? 0 : std::hypot(mean.x, mean.y);
         const double hx = flat > 1e-9 ? mean.x / flat : 1.0, hy = flat > 1e-9 ? mean.y / flat : 0.0;
         const double share = 1.0 / (per_batch_ * batches);
         std::vector<Arrival> arrivals;
@@ -211,12 +211,34 @@ private:
     /// A direction behind the element's own plane matters only for turned normals, next to a convex
     /// edge: an ion from there must get within a cell and a half of the element.
     bool reached_from_behind(const Vec3& at, const Vec3& from) const {
+        if (domain_.revolved()) return reached_in_round_cell(at, from);
         const double path = (caster_.z_open() - at.z) / from.z;
         Vec3 origin = at + from * path, direction = -from;
         fold(origin.x, direction.x, domain_.x_min(), domain_.width_x());
         fold(origin.y, direction.y, domain_.y_min(), domain_.width_y());
         const Hit hit = caster_.trace(origin, direction, -1);
         return hit.kind == Hit::Kind::surface && hit.distance > path - 1.5 * domain_.spacing;
+    }
+    /// The same where the side is a cylinder: the way from there to the element and, where that
+    /// comes before the open, the reflected rest of the way.
+    bool reached_in_round_cell(const Vec3& at, const Vec3& from) const {
+        const double square = from.x * from.x + from.y * from.y, radius = domain_.width_x();
+        const double opens = (caster_.z_open() - at.z) / from.z;
+        const double leaves =
+            square > 0 ? (std::sqrt(std::max(0.0, at.x * at.x * from.x * from.x +
+                                                      square * (radius * radius - at.x * at.x))) -
+                          at.x * from.x) /
+                             square
+                       : opens;
+        const double path = std::min(opens, leaves);
+        const Vec3 start = at + from * path;
+        const Hit hit = caster_.trace(start, -from, -1);
+        if (hit.kind != Hit::Kind::surface || hit.distance < path - 1.5 * domain_.spacing)
+            return false;
+        if (path == opens) return true;
+        const Vec3 outwards = Vec3(start.x, start.y, 0).normalized();
+        const Vec3 onwards = from - outwards * (2 * outwards.dot(from));
+        return caster_.trace(start, onwards, -1).kind == Hit::Kind::open;
     }
     void fold(double& at, double& direction, double low, double width) const {
         const double periods = domain_.sides == geometry::Sides::mirror ? 2 * width : width;
@@ -228,7 +250,10 @@ private:
         at += low;
     }
 
-    double own_angle(int e) const { return std::acos(std::clamp(normal_[e].z, -1.0, 1.0)); }
+    double own_angle(int e) const {
+        const Vec3& n = normal_[e];
+        return domain_.revolved() ? std::atan2(n.x, n.z) : std::acos(std::clamp(n.z, -1.0, 1.0));
+    }
 
     /// Raw rows of the kernels of a group, and what the batches say at the element's own normal.
     void tabulate(int group, int e, const std::vector<Arrival>& arrivals) {
@@ -326,8 +351,7 @@ DirectIons::SkyRay sky_ray(const geometry::Surface& surface, const IonDistributi
     const auto index = static_cast<std::uint32_t>(k);
     // Spread over the element, so that the flux is its mean and not that of its centre.
     const auto place = points.pair(index, 2);
-    return {launch_from_quad(surface, e, place[0], place[1]),
-            distribution.sample(points.four(index))};
+    return {launch_from(surface, e, place[0], place[1]), distribution.sample(points.four(index))};
 }
 
 DirectIons::Gathered gather_full(const geometry::Domain& domain, const geometry::Surface& surface,

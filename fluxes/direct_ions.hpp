@@ -17,16 +17,16 @@ namespace rille::fluxes {
 
 /// Ions that reach each surface element straight from the sheath, as every tally of the mechanism
 /// and as a function of the element's normal. extruded: exact (tables of the distribution over the
-/// visible interval of in-plane angles, gathered conservatively per segment). full: gathered along
-/// stratified directions with exact visibility.
+/// visible interval of in-plane angles, gathered conservatively per segment). full and revolved:
+/// gathered along stratified directions with exact visibility.
 ///
 /// Tallies are averages over about five cells of surface, never across a corner, that keep the flux
 /// of the elements averaged over.
 class DirectIons {
 public:
     struct Options {
-        /// full only, per element and per group of species that arrive alike; rounded up to a
-        /// multiple of 8. The average over about 25 elements makes the most of them.
+        /// full and revolved only, per element and per group of species that arrive alike; rounded
+        /// up to a multiple of 8. The average over about 25 elements makes the most of them.
         int directions = 64;
         std::uint64_t seed = 1;
         std::uint64_t refresh = 0;
@@ -57,7 +57,7 @@ public:
 
     const IonTables& tables() const { return *tables_; }
 
-    /// full: one ray of the gather; extruded has none.
+    /// full, revolved: one ray of the gather; extruded has none.
     struct SeenRay {
         float received = 0; ///< (r . n) / r_z if it came from the sky onto the outer side, else 0
         float cosine = 0;   ///< of the incidence on the averaged normal
@@ -85,7 +85,7 @@ public:
         std::vector<std::vector<double>> flux;  ///< [ion][e]
         std::vector<std::vector<double>> tally; ///< [tally][e]
         std::vector<std::vector<double>> batch; ///< [tally][e * 8 + b]; extruded: empty
-        int rays_per_batch = 0;                 ///< this and what follows: full only
+        int rays_per_batch = 0;                 ///< this and what follows: not extruded
         std::vector<int> group_of;              ///< ions that arrive alike share rays: [ion]
         std::vector<std::vector<SeenRay>> seen; ///< [group][(e * 8 + b) * rays_per_batch + k]
     };

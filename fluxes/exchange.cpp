@@ -119,7 +119,7 @@ double Exchange::Tracing::sky_flux(int element, int batch, const std::optional<A
     double flux = 0;
     for (int r = 0; r < n; ++r) {
         const auto u = stream.pair(r, 0), v = stream.pair(r, 1);
-        const Launch from = launch_from_quad(surface, element, v[0], v[1]);
+        const Launch from = launch_from(surface, element, v[0], v[1]);
         const Vec3 d = cosine_direction(from.normal, u[0], u[1]);
         const Hit hit = caster.trace(from.point, d, element);
         keep(hit, element, batch);
@@ -127,7 +127,7 @@ double Exchange::Tracing::sky_flux(int element, int batch, const std::optional<A
     }
     for (int r = 0; aim && r < n; ++r) {
         const auto u = stream.pair(r, 2), v = stream.pair(r, 3);
-        const Launch from = launch_from_quad(surface, element, v[0], v[1]);
+        const Launch from = launch_from(surface, element, v[0], v[1]);
         const Vec3 to(aim->x0 + u[0] * (aim->x1 - aim->x0), aim->y0 + u[1] * (aim->y1 - aim->y0),
                       aim->z);
         const Vec3 d = (to - from.point).normalized();

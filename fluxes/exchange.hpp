@@ -1,6 +1,7 @@
 // SPDX-License-Identifier: Apache-2.0
 #pragma once
 
+#include "fluxes/exchange_operator.hpp"
 #include "geometry/domain.hpp"
 #include "geometry/ray_caster.hpp"
 #include "geometry/surface.hpp"
@@ -10,19 +11,16 @@
 
 namespace rille::fluxes {
 
-/// Number of independent direction batches behind every sampling error.
-constexpr int batches = 8;
-
 /// The exchange operator of neutrals in free-molecular flow with diffuse re-emission: traced once,
 /// solved for many species. Arrivals follow from arrival = d + A (1 - sticking) arrival, fluxes
 /// relative to the open one. Row sum of A plus d is 1 by construction, so zero sticking gives flux
-/// 1 everywhere. d: extruded exact from the visible sky, full from rays by the cosine law combined
-/// with rays aimed at the opening (multiple importance sampling, unbiased). The rest of a row is
-/// shared equally by the elements that the cosine-law rays of the element hit.
+/// 1 everywhere. d: extruded exact from the visible sky, full and revolved from rays by the cosine
+/// law combined with rays aimed at the opening (multiple importance sampling, unbiased). The rest
+/// of a row is shared equally by the elements that the cosine-law rays of the element hit.
 ///
 /// The batches are independent of each other: each has its own scramble of launch points and
 /// directions. Elements without any path to the open (closed voids) receive nothing.
-class Exchange {
+class Exchange : public ExchangeOperator {
 public:
     struct Options {
         int rays_per_element = 64; ///< a multiple of `batches`
@@ -32,17 +30,16 @@ public:
     Exchange(const geometry::Domain&, const geometry::Surface&, const geometry::RayCaster&,
              const Options&);
 
-    std::size_t size() const { return direct_.size(); }
+    std::size_t size() const override { return direct_.size(); }
     /// Impinging flux per element relative to the open flux, for sticking per element in [0, 1].
     /// batch = -1 uses all rays, 0..7 one batch only. `guess` may be empty (warm start otherwise).
     /// Relative residual 1e-10; throws NumericsError if that is not reached. Adds the number of
     /// Krylov iterations to *iterations if given.
     std::vector<double> solve(const std::vector<double>& sticking, int batch,
                               const std::vector<double>& guess, int* iterations = nullptr) const;
-    /// arrival = A emitted, both of size(); emitted and arrival must not overlap.
-    void apply(int batch, const double* emitted, double* arrival) const;
-    /// The direct part d of all rays (batch = -1) or of one batch.
-    const std::vector<double>& direct(int batch = -1) const {
+    void apply(int batch, const double* emitted, double* arrival) const override;
+    bool sampled() const override { return true; }
+    const std::vector<double>& direct(int batch = -1) const override {
         return batch < 0 || batch_direct_.empty() ? direct_ : batch_direct_[batch];
     }
 

@@ -103,8 +103,8 @@ private:
     std::vector<Guide> guide_; ///< per ion species
 };
 
-/// full: drawn from the rays by which the direct flux was gathered, batch by batch, so that noise
-/// of the direct flux and of what it reflects belong together.
+/// full and revolved: drawn from the rays by which the direct flux was gathered, batch by batch, so
+/// that noise of the direct flux and of what it reflects belong together.
 class FullStrikes {
 public:
     explicit FullStrikes(const StrikeScene&);

@@ -97,8 +97,7 @@ namespace {
 
 std::vector<double> content_of(geometry::Symmetry symmetry, const std::vector<IonSource>& ions,
                                const std::vector<Tally>& tallies) {
-    std::vector<double> content = {symmetry == geometry::Symmetry::extruded ? 0.0 : 1.0,
-                                   static_cast<double>(ions.size())};
+    std::vector<double> content = {static_cast<double>(symmetry), static_cast<double>(ions.size())};
     for (const IonSource& ion : ions) {
         content.push_back(ion.flux);
         ion.distribution.append_content(content);
@@ -132,6 +131,7 @@ bool IonTables::serves(geometry::Symmetry symmetry, const std::vector<IonSource>
 
 void IonTables::place_angles(geometry::Symmetry symmetry) {
     const bool extruded = symmetry == geometry::Symmetry::extruded;
+    const bool contour = symmetry != geometry::Symmetry::full; // angles are signed
     std::vector<Grazing> grazing;
     const auto add = [&](double at, double spread) {
         spread = std::clamp(spread, 0.1 * degree, 10 * degree);
@@ -142,21 +142,21 @@ void IonTables::place_angles(geometry::Symmetry symmetry) {
     };
     for (const IonSource& ion : ions_) {
         for (const IonSpread& bundle : ion.distribution.spreads()) {
-            if (extruded) add(bundle.mean - 0.5 * pi, bundle.spread);
+            if (contour) add(bundle.mean - 0.5 * pi, bundle.spread);
             add(bundle.mean + 0.5 * pi, bundle.spread);
         }
-        if (extruded) continue;
+        if (contour) continue;
         // Walls of every azimuth meet a leaning beam between 90 deg less and 90 deg more its tilt.
         const double tilt = tilt_of(ion.distribution);
         for (double part : {-1.0, -0.5, 0.0, 0.5, 1.0})
             if (tilt > 0.1 * degree) add(0.5 * pi + part * tilt, 0.5 * tilt);
     }
     // Ions without a preferred side: angles without one, so that mirror images stay so.
-    const bool even = extruded && std::all_of(ions_.begin(), ions_.end(), [](const IonSource& ion) {
+    const bool even = contour && std::all_of(ions_.begin(), ions_.end(), [](const IonSource& ion) {
                           return std::fabs(ion.distribution.mean_rad()) < 1e-9;
                       });
-    const double from = extruded && !even ? -pi : 0.0;
-    const std::size_t most = extruded ? 240 : 64;
+    const double from = contour && !even ? -pi : 0.0;
+    const std::size_t most = extruded ? 240 : contour ? 128 : 64;
     for (double coarsen = 1;; coarsen *= 1.1) {
         std::vector<double> angles = march(from, pi, grazing, coarsen);
         if (even) {

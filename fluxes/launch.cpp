@@ -27,14 +27,24 @@ struct Facets {
     }
 };
 
+/// The square of the distance from the axis is spread evenly.
+Launch launch_from_frustum(const geometry::Surface& s, int element, double u) {
+    const Vec3 &a = s.vertices[s.corners[element][0]], &b = s.vertices[s.corners[element][1]];
+    const double r = std::sqrt(a.x * a.x + u * (b.x - a.x) * (b.x + a.x));
+    const double part = a.x + r > 0 ? u * (a.x + b.x) / (a.x + r) : u;
+    return {a + (b - a) * part, s.normal[element]};
+}
+
 } // namespace
 
 double launch_area(const geometry::Surface& surface, int element) {
+    if (surface.corners[element][2] < 0) return surface.area[element];
     const Facets facets(surface, element);
     return 0.5 * (facets.size[0] + facets.size[1]);
 }
 
-Launch launch_from_quad(const geometry::Surface& s, int element, double u, double v) {
+Launch launch_from(const geometry::Surface& s, int element, double u, double v) {
+    if (s.corners[element][2] < 0) return launch_from_frustum(s, element, u);
     const Facets facets(s, element);
     const auto& [both, cross, size] = facets;
     const double all = size[0] + size[1];

@@ -40,7 +40,9 @@ OpenSky::OpenSky(const geometry::Domain& domain, const geometry::Surface& surfac
     mirror_ = domain.sides == geometry::Sides::mirror;
     x_min_ = domain.x_min();
     length_ = surface.area;
-    unroll(domain, surface);
+    UnrolledChain chain = unroll(domain, surface);
+    point_ = std::move(chain.point);
+    position_ = std::move(chain.position);
     unwrap_normals();
     const std::size_t n = point_.size();
     std::vector<double> start(n, 0.0);
@@ -54,54 +56,6 @@ OpenSky::OpenSky(const geometry::Domain& domain, const geometry::Surface& surfac
         start[i] = -(normal_[n - 1 - i] + 0.5 * pi);
     right_ = pull(reflected_, start);
     find_floating(domain, surface);
-}
-
-/// Chain 0 from its highest vertex over one full period of the unrolled surface; positions made
-/// continuous by whole periods, mirror images by reflection.
-void OpenSky::unroll(const geometry::Domain&, const geometry::Surface& surface) {
-    int first = -1;
-    const int count = static_cast<int>(surface.size());
-    for (int e = 0; e < count && first < 0; ++e)
-        if (surface.chain[e] == 0 && (!mirror_ || surface.previous[e] < 0)) first = e;
-    RILLE_CHECK(first >= 0, "no part of the surface is open to the source");
-    std::vector<int> order;
-    for (int e = first; e >= 0; e = surface.next[e]) {
-        if (!order.empty() && e == first) break;
-        RILLE_CHECK(static_cast<int>(order.size()) < count, "the open surface never closes");
-        order.push_back(e);
-    }
-    const int n = static_cast<int>(order.size());
-    std::vector<Point> base;
-    for (int e : order) {
-        const geometry::Vec3 a = surface.vertices[surface.corners[e][0]];
-        const geometry::Vec3 b = surface.vertices[surface.corners[e][1]];
-        double from = a.x, to = b.x;
-        if (!mirror_) {
-            if (!base.empty()) from += period_ * std::round((base.back().x - from) / period_);
-            to += period_ * std::round((from - to) / period_);
-        }
-        if (base.empty()) base.push_back({from, a.z});
-        base.push_back({to, b.z});
-    }
-    const double span = base.back().x - base.front().x;
-    RILLE_CHECK(std::fabs(span - period_) < 1e-6 * period_,
-                "the open surface does not span the period");
-    int top = 0;
-    for (int i = 1; i < n; ++i)
-        if (base[i].z > base[top].z) top = i;
-    if (mirror_ && base[n].z > base[top].z) top = n;
-    const auto image = [&](int j) {
-        const int m = static_cast<int>(std::floor(double(j) / n)), r = j - m * n;
-        if (!mirror_) return Point{base[r].x + m * period_, base[r].z};
-        if (m % 2 == 0) return Point{base[r].x + m * period_, base[r].z};
-        return Point{2 * (x_min_ + period_) + (m - 1) * period_ - base[n - r].x, base[n - r].z};
-    };
-    const int total = mirror_ ? 2 * n : n;
-    for (int j = top; j <= top + total; ++j)
-        point_.push_back(image(j));
-    position_.assign(count, -1);
-    for (int i = 0; i < n; ++i)
-        position_[order[i]] = (i >= top ? i : i + total) - top;
 }
 
 void OpenSky::unwrap_normals() {

@@ -2,6 +2,7 @@
 #pragma once
 
 #include "fluxes/in_plane.hpp"
+#include "fluxes/unrolled_chain.hpp"
 #include "geometry/domain.hpp"
 #include "geometry/surface.hpp"
 
@@ -56,9 +57,7 @@ public:
     bool floating_pieces() const { return !floating_.empty(); }
 
 private:
-    struct Point {
-        double x = 0, z = 0;
-    };
+    using Point = PlanePoint;
     /// Taut strings towards one side: parent vertex and the angle at which it is seen.
     struct Strings {
         std::vector<int> parent;
@@ -75,7 +74,6 @@ private:
     };
     Visible seen_over(int element, double part_low, double part_high) const;
 
-    void unroll(const geometry::Domain&, const geometry::Surface&);
     void unwrap_normals();
     void find_floating(const geometry::Domain&, const geometry::Surface&);
     static Strings pull(const std::vector<Point>&, const std::vector<double>& start_angle);

@@ -70,7 +70,7 @@ public:
         result.value.assign(batches, std::vector<double>(tallies_.size() * surface_.size(), 0.0));
         double lost = 0, incident = 0;
         for (const IonSource& ion : ions_)
-            incident += ion.flux * domain_.width_x() * (domain_.extruded() ? 1 : domain_.width_y());
+            incident += ion.flux * domain_.base_area();
         for (const Chunk& chunk : chunks) {
             for (const Deposit& d : chunk.deposits)
                 result.value[chunk.batch][d.slot] += d.value;

@@ -131,7 +131,7 @@ void tabulate(const Setting& s, const IonArrivals& ions, SurfaceStep& step) {
     geometry::NormalRates& rates = step.rates;
     const bool any_ions = ions.direct && ions.tallies > 0;
     rates.angles = any_ions ? ions.direct->rate_angles()
-                            : std::vector<double>{s.domain.extruded() ? -pi : 0.0, pi};
+                            : std::vector<double>{s.domain.planar_contour() ? -pi : 0.0, pi};
     rates.first_row = s.reach.first;
     rates.material = s.reach.material;
     const std::size_t angles = rates.angles.size();

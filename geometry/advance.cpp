@@ -29,27 +29,79 @@ double Advance::change(const Slopes& s, const RowPair& row, const RateWindow& wi
     if (tables_.constant(row, window)) {
         speed.rate = tables_.rate(row, 0);
         double steep = upwind_steepness(s, speed.rate > 0, speed.waves);
-        if (fan && !extruded_) { // there a corner may meet a smooth face
+        if (fan && !planar_) { // there a corner may meet a smooth face
             double waves;
             const double down = upwind_steepness(s, speed.rate <= 0, waves);
             if ((steep - 1) * (down - 1) <= 0 && std::fabs(steep - 1) > unresolved) steep = 1;
         }
         speed.waves *= std::fabs(speed.rate);
-        return fan && extruded_ ? speed.rate : speed.rate * steep;
+        return fan && planar_ ? speed.rate : speed.rate * steep;
     }
-    return lax_friedrichs(tables_, row, window, extruded_, s, speed);
+    return lax_friedrichs(tables_, row, window, planar_, s, speed);
 }
+
+namespace {
+
+/// Cells whose rate depends on the normal, as many as are worked on side by side.
+struct FluxCells {
+    FluxLanes lanes;
+    int used = 0;
+    std::array<std::size_t, FluxLanes::count> cell;
+    std::array<const RowPair*, FluxLanes::count> rows;
+    std::array<const RateWindow*, FluxLanes::count> window;
+    std::array<bool, FluxLanes::count> held;
+
+    void add(const Band& band, const double* phi, std::size_t c, const RowPair& row,
+             const RateWindow& about) {
+        for (int axis = 0; axis < 3; axis += band.domain.planar_contour() ? 2 : 1) {
+            const Differences d = differences_along(band, phi, c, axis, 0);
+            lanes.back[axis][used] = d.back;
+            lanes.ahead[axis][used] = d.ahead;
+            lanes.bend[axis][used] = d.bend;
+            lanes.bend_left[axis][used] = d.bend_left;
+            lanes.bend_right[axis][used] = d.bend_right;
+        }
+        cell[used] = c;
+        rows[used] = &row;
+        window[used++] = &about;
+    }
+    void find(const RateTables& tables, bool planar, double inverse_spacing) {
+        lanes.find_slopes(planar, inverse_spacing);
+        tables.look_up_marks(lanes, used);
+        lanes.find_tilts();
+        for (int n = 0; n < used; ++n)
+            held[n] = rows[n]->share == 0 && rows[n]->row == window[n]->row &&
+                      tables.look_up_nodes(lanes, n, *window[n]);
+        lanes.find_fluxes(planar);
+    }
+    bool ordinary(int n) const { return held[n] && lanes.ordinary[n] != 0; }
+    Slopes slopes(int n) const {
+        Slopes s;
+        for (int axis = 0; axis < 3; ++axis) {
+            s.minus[axis] = lanes.minus[axis][n];
+            s.plus[axis] = lanes.plus[axis][n];
+        }
+        return s;
+    }
+};
+
+} // namespace
 
 /// Calls take(cell, dphi/dt, speed) for the cells of a range that move, but for layered ones.
 template <class Take>
 void Advance::sweep(const double* phi, std::size_t begin, std::size_t end, const Take& take) const {
-    std::array<FluxCell, 32> cells;
-    std::size_t count = 0;
+    FluxCells cells;
     const auto finish = [&] {
-        lax_friedrichs(tables_, extruded_, cells.data(), static_cast<int>(count));
-        for (std::size_t n = 0; n < count; ++n)
-            take(cells[n].cell, cells[n].change, cells[n].speed);
-        count = 0;
+        cells.find(tables_, planar_, 1 / h_);
+        for (int n = 0; n < cells.used; ++n) {
+            Speed speed{cells.lanes.waves[n], cells.lanes.smooth[n] != 0, cells.lanes.rate[n]};
+            double change = cells.lanes.change[n];
+            if (!cells.ordinary(n))
+                change = lax_friedrichs(tables_, *cells.rows[n], *cells.window[n], planar_,
+                                        cells.slopes(n), speed);
+            take(cells.cell[n], change, speed);
+        }
+        cells.used = 0;
     };
     for (std::size_t c = begin; c < end; ++c) {
         const RowPair& row = row_[c];
@@ -64,20 +116,16 @@ void Advance::sweep(const double* phi, std::size_t begin, std::size_t end, const
             take(c, rate, speed);
             continue;
         }
-        FluxCell& next = cells[count++];
-        next.cell = c;
-        next.rows = &row;
-        next.window = &window;
-        next.slopes = slopes(phi, c, 0, true);
-        if (count == cells.size()) finish();
+        cells.add(band_, phi, c, row, window);
+        if (cells.used == FluxLanes::count) finish();
     }
-    finish();
+    if (cells.used > 0) finish();
 }
 
 /// The same at the mean rate over `dt` through layers: each acts for its share of the time.
 double Advance::layered_change(const Slopes& s, const Layers& layers, bool fan, double dt) const {
     std::array<double, Layers::capacity> share;
-    const double angle = tilt_of(extruded_, s.mean(0), s.mean(1), s.mean(2)).angle;
+    const double angle = tilt_of(planar_, s.mean(0), s.mean(1), s.mean(2)).angle;
     walk(tables_, layers, angle, dt, share);
     double sum = 0;
     for (int k = 0; k < layers.count; ++k) {

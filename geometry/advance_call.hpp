@@ -47,7 +47,7 @@ public:
             GrownFilms& films, const std::vector<int>& growth_film, const AdvanceLimits& limits)
         : front_(front), band_(front.band()), surface_(surface), rates_(rates), tables_(rates),
           films_(films), growth_film_(growth_film), limits_(limits),
-          finder_(band_, rates, tables_, stack, films), extruded_(band_.domain.extruded()),
+          finder_(band_, rates, tables_, stack, films), planar_(band_.domain.planar_contour()),
           h_(band_.domain.spacing) {
         report_.moved.assign(surface.size(), 0.0);
     }
@@ -69,10 +69,11 @@ private:
     Slopes special_slopes(const double* phi, const LayeredCell&) const;
     Slopes slopes(const double* phi, std::size_t c, unsigned unseen, bool directional) const {
         const Limiter limiter = directional ? Limiter::directional : Limiter::isotropic;
-        return extruded_ ? slopes_2d(band_, phi, c, 1 / h_, unseen, limiter)
-                         : slopes_3d(band_, phi, c, 1 / h_, unseen, limiter);
+        return planar_ ? slopes_2d(band_, phi, c, 1 / h_, unseen, limiter)
+                       : slopes_3d(band_, phi, c, 1 / h_, unseen, limiter);
     }
     void find_even_cells();
+    bool may_rest() const;
     double change(const Slopes&, const RowPair&, const RateWindow&, bool fan, Speed&) const;
     void blend(RowPair&, const BetweenCentres&) const;
     template <class Take>
@@ -96,23 +97,31 @@ private:
     const std::vector<int>& growth_film_;
     const AdvanceLimits& limits_;
     LayerFinder finder_;
-    bool extruded_;
+    bool planar_;
     double h_;
     AdvanceReport report_;
     double moved_since_refresh_ = 0; ///< [cells]
     double time_of_refresh_ = 0;     ///< [s]
-    std::vector<Plate> plates_;      ///< the elements where they were at the last refresh
-    std::vector<int> element_;       ///< of each cell, -1: none
-    std::vector<RowPair> row_;
-    /// extruded: whether the nearest point is a sharp corner; full: see find_even_cells.
-    std::vector<char> fan_;
-    std::vector<double> slope_, next_; ///< dphi/dt at the first stage; phi after it
+    RawVector<Plate> plates_;        ///< the elements where they were at the last refresh
+    RawVector<int> element_;         ///< of each cell, -1: none
+    RawVector<RowPair> row_;
+    /// planar contour: whether the nearest point is a sharp corner; full: see find_even_cells.
+    RawVector<char> fan_;
+    RawVector<double> slope_, next_; ///< dphi/dt at the first stage; phi after it
     std::vector<LayeredCell> layered_;
     std::vector<int> layered_elements_;
-    std::vector<Tilt> element_tilt_;
-    std::vector<char> clear_; ///< no interface or grown film within reach of an element's cells
-    std::vector<RateWindow> element_window_;      ///< of the material below it, about its normal
-    std::vector<double> element_rate_, own_rate_; ///< own: before films are peeled
+    RawVector<Tilt> element_tilt_;
+    /// What cells ask about their element, together in memory.
+    struct Below {
+        double z;   ///< [nm] of its centre
+        int row;    ///< of the material below it
+        bool clear; ///< no interface or grown film within reach of its cells
+    };
+    RawVector<Below> below_;
+    bool something_rests_ = false;         ///< see resting_sides
+    bool something_constant_ = false;      ///< some element has a rate without regard to the normal
+    RawVector<RateWindow> element_window_; ///< of the material below it, about its normal
+    RawVector<double> element_rate_, own_rate_; ///< own: before films are peeled
 };
 
 } // namespace rille::geometry

@@ -56,11 +56,12 @@ Foot Advance::foot(std::size_t c) const {
 /// full: whether phi of a cell is the time at which the front passes it, but for the rate: where
 /// the rate does not depend on the normal and no neighbour has a faster one to spread from.
 void Advance::find_even_cells() {
-    if (extruded_) return;
-    std::vector<double> rate(band_.size(), 0.0); // NaN where it depends on the normal
+    if (planar_ || (!something_constant_ && layered_.empty())) return;
+    RawVector<double> rate(band_.size()); // NaN where it depends on the normal
     for_ranges(band_.size(), [&](std::size_t begin, std::size_t end) {
         for (std::size_t c = begin; c < end; ++c) {
             const int e = element_[c];
+            rate[c] = 0;
             if (e < 0) continue;
             const int row =
                 row_[c].row == layered_row ? finder_.row_below(e, foot(c)) : row_[c].row;
@@ -86,9 +87,8 @@ void Advance::classify_cells() {
             fan_[c] = 0;
             const int e = element_[c];
             if (e < 0) continue;
-            row_[c].row =
-                meets_layers(c) || resting_sides(c) ? layered_row : element_window_[e].row;
-            if (!extruded_) continue;
+            row_[c].row = meets_layers(c) || resting_sides(c) ? layered_row : below_[e].row;
+            if (!planar_) continue;
             blend(row_[c], place_of(c));
             fan_[c] = in_fan(c);
         }
@@ -115,7 +115,7 @@ void Advance::classify_cells() {
 bool Advance::meets_layers(std::size_t c) const {
     const int e = element_[c];
     const double z = (band_.cells[c].k + 0.5) * h_;
-    if (clear_[e] && std::fabs(z - plates_[e].centre.z) <= cell_reach * h_) return false;
+    if (below_[e].clear && std::fabs(z - below_[e].z) <= cell_reach * h_) return false;
     const double z_foot = nearest(c).z;
     const double middle = 0.5 * (z + z_foot), spread = 0.5 * std::fabs(z - z_foot);
     return finder_.near(e, middle, foot_reach * h_ + spread);
@@ -143,6 +143,7 @@ void Advance::blend(RowPair& rows, const BetweenCentres& place) const {
 /// Sides where the front of cell c meets one that turns by more than 45 degrees and rests, or
 /// nearly.
 unsigned Advance::resting_sides(std::size_t c) const {
+    if (!something_rests_) return 0;
     const int e = element_[c];
     const double rate = own_rate_[e];
     if (rate <= 0) return 0;
@@ -155,6 +156,16 @@ unsigned Advance::resting_sides(std::size_t c) const {
     return sides;
 }
 
+/// Whether resting_sides can find any.
+bool Advance::may_rest() const {
+    double least = std::numeric_limits<double>::infinity(), most = 0;
+    for (const double rate : own_rate_) {
+        least = std::min(least, std::fabs(rate));
+        most = std::max(most, rate);
+    }
+    return !(least > resting_share * most);
+}
+
 /// A front that runs down along a resting wall leaves the wall behind it: at an inner edge the
 /// distance to the surface is at most the distance to the wall's plane, on either side of it.
 void Advance::find_wall(LayeredCell& at) const {
@@ -165,7 +176,7 @@ void Advance::find_wall(LayeredCell& at) const {
         if (band_.domain.sides == Sides::periodic) {
             const double wx = band_.domain.width_x(), wy = band_.domain.width_y();
             d.x -= wx * std::round(d.x / wx);
-            if (!extruded_) d.y -= wy * std::round(d.y / wy);
+            if (!planar_) d.y -= wy * std::round(d.y / wy);
         }
         return d;
     };
@@ -190,29 +201,37 @@ void Advance::classify_elements() {
     element_tilt_.resize(surface_.size());
     element_window_.resize(surface_.size());
     element_rate_.resize(surface_.size());
-    clear_.resize(surface_.size());
-    std::vector<char> layered(surface_.size());
-    for_ranges(surface_.size(), [&](std::size_t begin, std::size_t end) {
-        for (std::size_t e = begin; e < end; ++e) {
-            const Vec3& n = surface_.normal[e];
-            element_tilt_[e] = tilt_of(extruded_, n.x, n.y, n.z);
-        }
-        // Rows of the tables come from far away; apart from the tilts, many are asked for at once.
-        for (std::size_t e = begin; e < end; ++e) {
-            const Plate& plate = plates_[e];
-            const int id = static_cast<int>(e);
-            const int row = finder_.row_below(id, {plate.centre, -plate.normal, false});
-            element_rate_[e] = tables_.rate(row, element_tilt_[e].angle);
-            element_window_[e] = tables_.window(row, element_tilt_[e].angle);
-            // Growth starts a film, so such elements are layered too.
-            layered[e] = element_rate_[e] < 0 || finder_.near(id, plate.centre.z, reach);
-            clear_[e] =
-                !finder_.near(id, plate.centre.z, (foot_reach + cell_reach) * h_ + plate.radius);
-        }
-    });
+    below_.resize(surface_.size());
+    RawVector<char> layered(surface_.size());
+    const double constant =
+        largest_of_ranges(surface_.size(), [&](std::size_t begin, std::size_t end) {
+            for (std::size_t e = begin; e < end; ++e) {
+                const Plate& plate = plates_[e];
+                const Vec3& n = surface_.normal[e];
+                element_tilt_[e] = tilt_of(planar_, n.x, n.y, n.z);
+                below_[e].z = plate.centre.z;
+                below_[e].row =
+                    finder_.row_below(static_cast<int>(e), {plate.centre, -plate.normal, false});
+            }
+            bool any = false;
+            for (std::size_t e = begin; e < end; ++e) {
+                const Plate& plate = plates_[e];
+                const int id = static_cast<int>(e), row = below_[e].row;
+                any = any || (tables_.constant(row) && tables_.moves(row));
+                element_rate_[e] = tables_.rate(row, element_tilt_[e].angle);
+                element_window_[e] = tables_.window(row, element_tilt_[e].angle);
+                // Growth starts a film, so such elements are layered too.
+                layered[e] = element_rate_[e] < 0 || finder_.near(id, plate.centre.z, reach);
+                below_[e].clear = !finder_.near(id, plate.centre.z,
+                                                (foot_reach + cell_reach) * h_ + plate.radius);
+            }
+            return any ? 1.0 : 0.0;
+        });
+    something_constant_ = constant > 0;
     layered_elements_ =
         indices_where(layered.size(), [&](std::size_t e) { return layered[e] != 0; });
     own_rate_ = element_rate_;
+    something_rests_ = may_rest();
     for (const int e : layered_elements_)
         element_rate_[e] = 0;
 }

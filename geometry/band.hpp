@@ -2,9 +2,9 @@
 #pragma once
 
 #include "geometry/domain.hpp"
+#include "geometry/raw_vector.hpp"
 
 #include <array>
-#include <vector>
 
 namespace rille::geometry {
 
@@ -16,11 +16,11 @@ struct Band {
         int i, j, k;
     };
     Domain domain;
-    std::vector<Cell> cells;
-    std::vector<double> phi;
+    RawVector<Cell> cells;
+    RawVector<double> phi;
     /// Neighbours in the order -x, +x, -y, +y, -z, +z; sides are built in (a mirror neighbour of an
     /// outermost node is the node itself). -1 outside the band; in extruded -y and +y are -1.
-    std::vector<std::array<int, 6>> neighbour;
+    RawVector<std::array<int, 6>> neighbour;
 
     std::size_t size() const { return cells.size(); }
 };

@@ -115,20 +115,22 @@ double eikonal(const Band& band, std::size_t c, double unknown) {
 }
 
 /// Marks the cells with a neighbour of the other sign. Only contouring in three dimensions asks.
-std::vector<char> beside_contour(const Band& band) {
-    std::vector<char> beside(band.size(), 0);
-    if (band.domain.extruded()) return beside;
+RawVector<char> beside_contour(const Band& band) {
+    RawVector<char> beside(band.size());
+    const bool flat = band.domain.planar_contour();
     for_ranges(band.size(), [&](std::size_t begin, std::size_t end) {
-        for (std::size_t c = begin; c < end; ++c)
+        for (std::size_t c = begin; c < end; ++c) {
+            beside[c] = 0;
             for (const int n : band.neighbour[c])
-                if (n >= 0 && (band.phi[n] < 0) != (band.phi[c] < 0)) beside[c] = 1;
+                if (!flat && n >= 0 && (band.phi[n] < 0) != (band.phi[c] < 0)) beside[c] = 1;
+        }
     });
     return beside;
 }
 
 /// Whether a marked cell lies within `steps` of c. Contouring needs all cells within two steps,
 /// whatever phi says where it is no distance.
-bool within_steps(const Band& band, const std::vector<char>& beside, int c, int steps) {
+bool within_steps(const Band& band, const RawVector<char>& beside, int c, int steps) {
     if (beside[c]) return true;
     if (steps == 0) return false;
     for (const int n : band.neighbour[c])
@@ -162,12 +164,12 @@ private:
 /// Missing neighbours of those of the cells from(0) to from(count - 1) that are within `reach` or
 /// one step from the contour.
 template <class From>
-std::vector<Fresh> missing_cells(const Band& band, const std::vector<char>& beside, double reach,
+std::vector<Fresh> missing_cells(const Band& band, const RawVector<char>& beside, double reach,
                                  std::size_t count, const From& from) {
     static constexpr int step[6][3] = {{-1, 0, 0}, {1, 0, 0},  {0, -1, 0},
                                        {0, 1, 0},  {0, 0, -1}, {0, 0, 1}};
     const Domain& d = band.domain;
-    const bool flat = d.extruded();
+    const bool flat = d.planar_contour();
     const Order order(band);
     std::vector<std::vector<Fresh>> parts(range_of(count) + 1);
     for_ranges(count, [&](std::size_t begin, std::size_t end) {
@@ -198,13 +200,13 @@ std::vector<Fresh> missing_cells(const Band& band, const std::vector<char>& besi
 }
 
 /// Puts cells in where they belong, with phi = `unknown` on their side; returns where they are.
-std::vector<int> insert(Band& band, std::vector<char>& beside, const std::vector<Fresh>& fresh,
+std::vector<int> insert(Band& band, RawVector<char>& beside, const std::vector<Fresh>& fresh,
                         double unknown) {
     const std::size_t old = band.size(), size = old + fresh.size();
     const Order order(band);
-    std::vector<Band::Cell> cells(size);
-    std::vector<double> phi(size);
-    std::vector<char> marks(size, 0);
+    RawVector<Band::Cell> cells(size);
+    RawVector<double> phi(size);
+    RawVector<char> marks(size);
     std::vector<int> added(fresh.size());
     const auto first_after = [&](std::size_t c) {
         return std::lower_bound(fresh.begin(), fresh.end(), order.fresh(band.cells[c], false)) -
@@ -217,6 +219,7 @@ std::vector<int> insert(Band& band, std::vector<char>& beside, const std::vector
             if (f < f_end && (c == end || fresh[f] < order.fresh(band.cells[c], false))) {
                 cells[to] = order.cell(fresh[f]);
                 phi[to] = fresh[f] & 1 ? unknown : -unknown;
+                marks[to] = 0;
                 added[f++] = static_cast<int>(to);
             } else {
                 cells[to] = band.cells[c];
@@ -229,7 +232,7 @@ std::vector<int> insert(Band& band, std::vector<char>& beside, const std::vector
     band.phi.swap(phi);
     beside.swap(marks);
     connect(band);
-    if (band.domain.extruded()) return added;
+    if (band.domain.planar_contour()) return added;
     const auto other_side = [&](int c, int n) {
         return n >= 0 && (band.phi[n] < 0) != (band.phi[c] < 0);
     };
@@ -249,7 +252,7 @@ std::vector<int> insert(Band& band, std::vector<char>& beside, const std::vector
 /// Eikonal values for added cells. Upwind neighbours among themselves settle in as many rounds as
 /// chains are long.
 void solve(Band& band, const std::vector<int>& added, double unknown) {
-    std::vector<double> value(added.size());
+    RawVector<double> value(added.size());
     std::vector<char> news(band.size(), 0);
     const auto hears_news = [&](int c) {
         for (int side = 0; side < 6; ++side) {
@@ -323,12 +326,12 @@ void connect(Band& band) {
     over_rows([&](std::size_t row) { // each links itself to the rows after it
         const int j = static_cast<int>(row % ny);
         if (row + ny < rows.rows()) join_rows(band, rows, row, row + ny, 5);
-        if (d.extruded()) return;
+        if (d.planar_contour()) return;
         if (j + 1 < ny) return join_rows(band, rows, row, row + 1, 3);
         if (d.sides == Sides::periodic) return join_rows(band, rows, row, row - j, 3);
         mirror_row(band, rows.first(row), rows.first(row + 1), 3);
     });
-    if (d.extruded() || d.sides == Sides::periodic) return;
+    if (d.planar_contour() || d.sides == Sides::periodic) return;
     for (std::size_t row = 0; row < rows.rows(); row += ny)
         mirror_row(band, rows.first(row), rows.first(row + 1), 2);
 }
@@ -337,7 +340,7 @@ void retopologise(Band& band, int layers) {
     const double reach = band_half_width * band.domain.spacing, unknown = 4 * reach;
     // A cell of more than this has no missing neighbour within the half-width: see least_rise.
     const double inner = reach - least_rise * band.domain.spacing;
-    std::vector<char> beside = beside_contour(band);
+    RawVector<char> beside = beside_contour(band);
     std::vector<int> added;
     for (int layer = 0; layer < layers; ++layer) {
         // After the first layer only what it added can lack neighbours.
@@ -355,8 +358,8 @@ void retopologise(Band& band, int layers) {
                within_steps(band, beside, static_cast<int>(c), 2);
     });
     if (kept.size() == band.size()) return;
-    std::vector<Band::Cell> cells(kept.size());
-    std::vector<double> phi(kept.size());
+    RawVector<Band::Cell> cells(kept.size());
+    RawVector<double> phi(kept.size());
     for_ranges(kept.size(), [&](std::size_t begin, std::size_t end) {
         for (std::size_t at = begin; at < end; ++at) {
             cells[at] = band.cells[kept[at]];
@@ -369,8 +372,8 @@ void retopologise(Band& band, int layers) {
 }
 
 bool contour_lacks_cells(const Band& band) {
-    if (band.domain.extruded()) return false;
-    const std::vector<char> beside = beside_contour(band);
+    if (band.domain.planar_contour()) return false;
+    const RawVector<char> beside = beside_contour(band);
     return largest_of_ranges(band.size(), [&](std::size_t begin, std::size_t end) {
                for (std::size_t c = begin; c < end; ++c)
                    if (has_gap(band.neighbour[c], false) &&
@@ -381,7 +384,7 @@ bool contour_lacks_cells(const Band& band) {
 }
 
 double edge_distance(const Band& band) {
-    const bool flat = band.domain.extruded();
+    const bool flat = band.domain.planar_contour();
     const double far = 1e3 * band_half_width * band.domain.spacing;
     return far - largest_of_ranges(band.size(), [&](std::size_t begin, std::size_t end) {
                double most = 0;

@@ -12,18 +12,18 @@ constexpr double smooth_cosine = 0.8660254037844386; ///< 30 degrees: beyond it 
 
 BetweenCentres between_centres(const Domain& domain, const Surface& s, int element, Vec3 foot) {
     BetweenCentres place{element, -1, 0};
-    if (element < 0 || !domain.extruded()) return place;
+    if (element < 0 || !domain.planar_contour()) return place;
     if (domain.sides == Sides::periodic)
         foot.x -= domain.width_x() * std::round((foot.x - s.centre[element].x) / domain.width_x());
     const Vec3 along = s.vertices[s.corners[element][1]] - s.vertices[s.corners[element][0]];
-    const double length = s.area[element];
+    const double length = s.length(element);
     if (!(length > 0)) return place;
     const double ahead =
         std::clamp((foot - s.centre[element]).dot(along) / length, -0.5 * length, 0.5 * length);
     const int partner = ahead > 0 ? s.next[element] : s.previous[element];
     if (partner < 0 || s.normal[element].dot(s.normal[partner]) < smooth_cosine) return place;
     place.partner = partner;
-    place.share = std::fabs(ahead) / (0.5 * (length + s.area[partner]));
+    place.share = std::fabs(ahead) / (0.5 * (length + s.length(partner)));
     return place;
 }
 

@@ -14,7 +14,7 @@ struct BetweenCentres {
     double share = 0; ///< in [0, 1)
 };
 
-/// Linear interpolation along the chain of an extruded surface; `foot` on or near `element`. A foot
+/// Linear interpolation along the chain of a contour; `foot` on or near `element`. A foot
 /// on a vertex gives the same value whichever of the two elements it is counted to. In full the
 /// element alone counts.
 BetweenCentres between_centres(const Domain&, const Surface&, int element, Vec3 foot);

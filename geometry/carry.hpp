@@ -11,10 +11,11 @@ struct CarryTask {
     const Surface& to;
     const std::vector<double>& moved;
     double period_x, period_y; ///< [nm] 0 if mirrored
+    bool revolved;             ///< amounts are those of whole frusta
     const std::vector<SurfaceField*>& fields;
 };
 
-void carry_extruded(const CarryTask&);
+void carry_contour(const CarryTask&); ///< extruded, revolved
 void carry_full(const CarryTask&);
 
 } // namespace rille::geometry

@@ -14,8 +14,8 @@ constexpr double window = 2.5;        ///< [mean elements] a direction is taken 
 
 double mean_length(const Surface& s) {
     double sum = 0;
-    for (double a : s.area)
-        sum += a;
+    for (int e = 0; e < static_cast<int>(s.size()); ++e)
+        sum += s.length(e);
     return sum / s.size();
 }
 
@@ -42,8 +42,8 @@ void ArcMap::list_chains() {
         if (e == 0 || to_.chain[e] != to_.chain[e - 1]) chains_.push_back({e, e, false, 0});
         chain_of_[e] = static_cast<int>(chains_.size()) - 1;
         chains_.back().last = e + 1;
-        arc_[e + 1] = arc_[e] + to_.area[e];
-        longest_ = std::max(longest_, to_.area[e]);
+        arc_[e + 1] = arc_[e] + to_.length(e);
+        longest_ = std::max(longest_, to_.length(e));
     }
     for (ArcChain& c : chains_) {
         c.closed = to_.next[c.last - 1] == c.first;
@@ -88,7 +88,7 @@ double ArcMap::walk(int e, bool back, double length, const Visit& visit) const {
     Vec3 normal = from_.normal[e];
     // There and back at most: a piece of no length would go round for ever.
     for (std::size_t seen = 0; done < length && seen < 2 * from_.size(); ++seen) {
-        const double part = std::min(from_.area[e], length - done);
+        const double part = std::min(from_.length(e), length - done);
         visit(normal, part);
         done += part;
         const int next = back ? from_.previous[e] : from_.next[e];
@@ -135,7 +135,7 @@ Place ArcMap::place(const Vec3& p) const {
                 best2 = d2;
                 best.element = e;
                 best.chain = chain_of_[e];
-                best.arc = t >= 1 ? arc_[e + 1] : arc_[e] + t * to_.area[e];
+                best.arc = t >= 1 ? arc_[e + 1] : arc_[e] + t * to_.length(e);
             }
         });
         if (radius > 1e9 * mean_) break;
@@ -232,7 +232,7 @@ bool ArcMap::covered(int e, double& length) const {
     const Place &a = low_[e], &b = high_[e];
     if (a.chain != b.chain) return false;
     length = ahead(a, b);
-    return std::fabs(length) <= 3 * from_.area[e] + 4 * std::fabs(task_.moved[e]) + 4 * mean_;
+    return std::fabs(length) <= 3 * from_.length(e) + 4 * std::fabs(task_.moved[e]) + 4 * mean_;
 }
 
 } // namespace rille::geometry

@@ -1,5 +1,5 @@
 // SPDX-License-Identifier: Apache-2.0
-// Private to geometry: where the elements of an extruded front have come to lie on the next one.
+// Private to geometry: where the elements of a contour have come to lie on the next one.
 #pragma once
 
 #include "geometry/carry.hpp"

@@ -7,8 +7,7 @@
 namespace rille::geometry {
 
 void carry_fields(const Surface& from, const Surface& to, const std::vector<double>& moved,
-                  double width_x, double width_y, bool periodic,
-                  std::vector<SurfaceField*> fields) {
+                  const Domain& domain, const std::vector<SurfaceField*>& fields) {
     RILLE_CHECK(moved.size() == from.size(), "one displacement per element");
     for (const SurfaceField* f : fields)
         RILLE_CHECK(f->value.size() == from.size(),
@@ -20,9 +19,16 @@ void carry_fields(const Surface& from, const Surface& to, const std::vector<doub
             f->value.assign(to.size(), 0);
         return;
     }
-    const CarryTask task{from, to, moved, periodic ? width_x : 0, periodic ? width_y : 0, fields};
-    if (to.corners.front()[2] < 0)
-        carry_extruded(task);
+    const bool periodic = domain.sides == Sides::periodic;
+    const CarryTask task{from,
+                         to,
+                         moved,
+                         periodic ? domain.width_x() : 0,
+                         periodic ? domain.width_y() : 0,
+                         domain.revolved(),
+                         fields};
+    if (domain.planar_contour())
+        carry_contour(task);
     else
         carry_full(task);
 }

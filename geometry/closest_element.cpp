@@ -52,7 +52,7 @@ Vec3 from_centre(const Domain& domain, const Vec3& p, const Plate& plate) {
         if (std::fabs(d) > 0.5 * width) d -= width * std::round(d / width);
     };
     shorten(apart.x, domain.width_x());
-    if (!domain.extruded()) shorten(apart.y, domain.width_y());
+    if (!domain.planar_contour()) shorten(apart.y, domain.width_y());
     return apart;
 }
 
@@ -109,15 +109,15 @@ private:
     const Surface& surface_;
     const Domain domain_;
     double tie_; ///< squares of distances that differ by no more [nm^2]
-    std::vector<Plate> plates_;
+    RawVector<Plate> plates_;
     // Per cell; apart from each other because neighbours ask for the element alone.
-    std::vector<int> element_;
-    std::vector<double> square_;
-    std::vector<char> ring_, news_; ///< news: of the ring where a cell has just changed its element
-    std::vector<int> ring_cells_;   ///< cells by ring
+    RawVector<int> element_;
+    RawVector<double> square_;
+    RawVector<char> ring_, news_; ///< news: of the ring where a cell has just changed its element
+    RawVector<int> ring_cells_;   ///< cells by ring
     std::array<std::size_t, rings + 1> ring_first_;
     /// Elements by the cell that holds their centre: the first of each cell, the next of each.
-    std::vector<int> home_first_, home_next_;
+    RawVector<int> home_first_, home_next_;
 };
 
 void Search::pack(const std::vector<double>& moved) {
@@ -125,9 +125,9 @@ void Search::pack(const std::vector<double>& moved) {
     for_ranges(plates_.size(), [&](std::size_t begin, std::size_t end) {
         for (std::size_t e = begin; e < end; ++e) {
             const Vec3& n = surface_.normal[e];
-            const double area = surface_.area[e];
             plates_[e] = {moved.empty() ? surface_.centre[e] : surface_.centre[e] - n * moved[e], n,
-                          domain_.extruded() ? 0.5 * area : std::sqrt(area * (1 / pi))};
+                          domain_.planar_contour() ? 0.5 * surface_.length(static_cast<int>(e))
+                                                   : std::sqrt(surface_.area[e] * (1 / pi))};
         }
     });
 }
@@ -135,12 +135,12 @@ void Search::pack(const std::vector<double>& moved) {
 void Search::assign_homes() {
     const RowIndex index(band_);
     const double scale = 1 / domain_.spacing;
-    std::vector<int> home(surface_.size());
+    RawVector<int> home(surface_.size());
     for_ranges(home.size(), [&](std::size_t begin, std::size_t end) {
         for (std::size_t e = begin; e < end; ++e) {
             const Vec3& c = plates_[e].centre;
             const int i = static_cast<int>(std::floor((c.x - domain_.x_min()) * scale));
-            const int j = domain_.extruded()
+            const int j = domain_.planar_contour()
                               ? 0
                               : static_cast<int>(std::floor((c.y - domain_.y_min()) * scale));
             home[e] = index.find(fold_index(i, domain_.cells_x, domain_.sides),
@@ -148,7 +148,10 @@ void Search::assign_homes() {
                                  static_cast<int>(std::floor(c.z * scale)));
         }
     });
-    home_first_.assign(band_.size(), -1);
+    home_first_.resize(band_.size());
+    for_ranges(band_.size(), [&](std::size_t begin, std::size_t end) {
+        std::fill(home_first_.begin() + begin, home_first_.begin() + end, -1);
+    });
     home_next_.resize(home.size());
     for (int e = static_cast<int>(home.size()) - 1; e >= 0; --e)
         if (home[e] >= 0) home_next_[e] = std::exchange(home_first_[home[e]], e);
@@ -158,11 +161,16 @@ void Search::sort_into_rings() {
     const std::size_t n = band_.size();
     const double scale = 1 / domain_.spacing;
     ring_.resize(n);
+    element_.resize(n);
+    news_.resize(n);
+    square_.resize(n);
     std::vector<std::array<std::size_t, rings>> first(range_of(n) + 1);
     for_ranges(n, [&](std::size_t begin, std::size_t end) {
         auto& count = first[range_of(begin)];
         count.fill(0);
         for (std::size_t c = begin; c < end; ++c) {
+            element_[c] = -1;
+            news_[c] = no_news;
             ring_[c] = static_cast<char>(std::min(rings - 1.0, std::fabs(band_.phi[c]) * scale));
             ++count[ring_[c]];
         }
@@ -209,7 +217,7 @@ void Search::offer(const Vec3& p, int e, Candidate& best) const {
 /// may know one only.
 void Search::offer_joined(const Vec3& p, int e, Candidate& best) const {
     offer(p, e, best);
-    if (!domain_.extruded()) return;
+    if (!domain_.planar_contour()) return;
     for (const int n : {surface_.previous[e], surface_.next[e]})
         if (n >= 0) offer(p, n, best);
 }
@@ -242,7 +250,7 @@ void Search::ask_inner_rings(int ring) {
 
 /// Nobody needs to hear a thing twice: only what has changed since the last round counts.
 void Search::ask_own_ring(int ring) {
-    std::vector<Candidate> next(ring_first_[ring + 1] - ring_first_[ring]);
+    RawVector<Candidate> next(ring_first_[ring + 1] - ring_first_[ring]);
     for_ranges(next.size(), [&](std::size_t begin, std::size_t end) {
         for (std::size_t r = begin; r < end; ++r) {
             const int c = ring_cells_[ring_first_[ring] + r];
@@ -263,10 +271,6 @@ void Search::ask_own_ring(int ring) {
 }
 
 ClosestElements Search::run() {
-    const std::size_t n = band_.size();
-    element_.assign(n, -1);
-    news_.assign(n, no_news);
-    square_.resize(n);
     for (int ring = 0; ring < rings; ++ring) {
         ask_inner_rings(ring);
         for (int round = 0; round < (ring == 0 ? 2 : 1); ++round)
@@ -277,8 +281,8 @@ ClosestElements Search::run() {
 
 } // namespace
 
-Vec3 nearest_point(const Surface& s, bool extruded, int e, const Vec3& p) {
-    if (extruded)
+Vec3 nearest_point(const Surface& s, bool planar, int e, const Vec3& p) {
+    if (planar)
         return nearest_on_segment(s.vertices[s.corners[e][0]], s.vertices[s.corners[e][1]], p);
     const Vec3 from = p - s.centre[e];
     const Vec3 across = from - s.normal[e] * from.dot(s.normal[e]);
@@ -287,8 +291,8 @@ Vec3 nearest_point(const Surface& s, bool extruded, int e, const Vec3& p) {
     return s.centre[e] + across * std::sqrt(radius_square / square);
 }
 
-Vec3 exact_nearest_point(const Surface& s, bool extruded, int e, const Vec3& p) {
-    if (extruded) return nearest_point(s, extruded, e, p);
+Vec3 exact_nearest_point(const Surface& s, bool planar, int e, const Vec3& p) {
+    if (planar) return nearest_point(s, planar, e, p);
     const auto& q = s.corners[e];
     const Vec3 first = nearest_on_triangle(s.vertices[q[0]], s.vertices[q[1]], s.vertices[q[2]], p);
     if (q[2] == q[3]) return first;

@@ -19,12 +19,12 @@ Vec3 nearest_point(const Domain&, const Plate&, const Vec3& p);
 
 /// For every cell of a band the nearest element of a surface.
 struct ClosestElements {
-    std::vector<Plate> plates;
-    std::vector<int> element; ///< -1 where no element lies within reach
+    RawVector<Plate> plates;
+    RawVector<int> element; ///< -1 where no element lies within reach
 };
 
 /// Nearest point to p on element e, exact for segments, triangles and planar quads.
-Vec3 exact_nearest_point(const Surface&, bool extruded, int e, const Vec3& p);
+Vec3 exact_nearest_point(const Surface&, bool planar, int e, const Vec3& p);
 
 /// Nearest elements for all cells, `moved` [nm] along -normal from where `surface` has them (empty:
 /// not moved). Of elements equally near (at a corner), the one that faces the cell most wins, then

@@ -117,7 +117,7 @@ private:
         if (kind == 1) p.z += h_ * share(band_.phi[c], band_.phi[up]);
         if (kind == 2) p.x += side * 0.5 * h_ * share(band_.phi[c], side_value(c, side));
         if (kind == 3) {
-            p.x = side * 0.5 * band_.domain.width_x();
+            p.x = side < 0 ? band_.domain.x_min() : band_.domain.x_max();
             p.z += h_ * share(side_value(c, side), side_value(up, side));
         }
         return p;

@@ -1,5 +1,5 @@
 // SPDX-License-Identifier: Apache-2.0
-// Private to geometry: the zero contour of an extruded band as chains of points.
+// Private to geometry: the zero contour of a band in one plane as chains of points.
 #pragma once
 
 #include "geometry/band.hpp"
@@ -10,7 +10,7 @@ namespace rille::geometry {
 
 struct ContourPoint {
     Vec3 p;             ///< [nm], y = 0; not wrapped: a chain runs on across a periodic side
-    bool fixed = false; ///< on a mirror side, or a rebuilt corner
+    bool fixed = false; ///< on a mirror side or the axis, or a rebuilt corner
 };
 
 /// Connected points with the gas on the left.
@@ -20,7 +20,7 @@ struct ContourChain {
     double shift = 0;    ///< [nm] 0, or +-width_x for a chain that runs across a periodic domain
 };
 
-/// Marching squares on the dual cells of an extruded band; where a cell is ambiguous the mean of
+/// Marching squares on the dual cells of a band in one plane; where a cell is ambiguous the mean of
 /// its four values decides. At a mirror side phi is extrapolated from inside to the side plane.
 std::vector<ContourChain> contour_chains(const Band&);
 

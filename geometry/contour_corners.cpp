@@ -241,8 +241,10 @@ int find_fold(const std::vector<ContourPoint>& points) {
 
 /// The chain's points with the corners put in and the points that they disturb settled.
 std::vector<ContourPoint> with_corners(const ContourChain& chain, const Padded& padded,
-                                       const std::vector<RebuiltCorner>& corners, double half,
-                                       double h) {
+                                       const std::vector<RebuiltCorner>& corners,
+                                       const Domain& domain) {
+    const double h = domain.spacing, low = domain.x_min() + 0.3 * h,
+                 high = domain.x_max() - 0.3 * h;
     std::vector<ContourPoint> rebuilt;
     const int size = static_cast<int>(chain.points.size());
     const int head = static_cast<int>(std::find(padded.source.begin(), padded.source.end(), 0) -
@@ -252,7 +254,7 @@ std::vector<ContourPoint> with_corners(const ContourChain& chain, const Padded& 
         for (; next < corners.size() && corners[next].s < arc; ++next) {
             const RebuiltCorner& c = corners[next];
             if (c.s < 0 || c.s >= padded.length) continue;
-            if (!chain.closed && std::fabs(c.p.x) > half - 0.3 * h) continue;
+            if (!chain.closed && (c.p.x < low || c.p.x > high)) continue;
             rebuilt.push_back({c.p, true});
         }
     };
@@ -290,7 +292,7 @@ void rebuild_corners(ContourChain& chain, const Domain& domain) {
         if (intersect(padded, h, before - 0.5, after - 0.5, corner)) corners.push_back(corner);
     }
     while (!corners.empty()) {
-        auto rebuilt = with_corners(chain, padded, corners, 0.5 * domain.width_x(), h);
+        auto rebuilt = with_corners(chain, padded, corners, domain);
         const int fold = find_fold(rebuilt);
         if (fold < 0) {
             chain.points = std::move(rebuilt);

@@ -3,11 +3,15 @@
 
 namespace rille::geometry {
 
+namespace {
+constexpr double pi = 3.14159265358979323846;
+} // namespace
+
 Surface extract_surface(const Band& band) {
-    return band.domain.extruded() ? extract_extruded(band) : extract_full(band);
+    return band.domain.planar_contour() ? extract_contour(band) : extract_full(band);
 }
 
-void add_element(Surface& s, const std::array<int, 4>& corners, int chain) {
+void add_element(Surface& s, const std::array<int, 4>& corners, int chain, bool revolved) {
     const Vec3 a = s.vertices[corners[0]], b = s.vertices[corners[1]];
     Vec3 centre, across;
     if (corners[2] < 0) {
@@ -21,7 +25,7 @@ void add_element(Surface& s, const std::array<int, 4>& corners, int chain) {
     const double size = across.length();
     s.corners.push_back(corners);
     s.centre.push_back(centre);
-    s.area.push_back(size);
+    s.area.push_back(revolved ? pi * (a.x + b.x) * size : size);
     s.normal.push_back(size > 0 ? across / size : Vec3(0, 0, 1));
     s.chain.push_back(chain);
 }

@@ -11,12 +11,12 @@ namespace rille::geometry {
 /// from a neighbour's must have its full ring of neighbours (diagonals included) in the band.
 Surface extract_surface(const Band&);
 
-Surface extract_extruded(const Band&);
+Surface extract_contour(const Band&); ///< extruded, revolved
 Surface extract_full(const Band&);
 
 /// Appends one element and derives its centre, unit normal and area from its corners (see
-/// surface.hpp for their order). The area of a quad is that of its mean plane, so the sum of
-/// area * normal over a closed rim is exact.
-void add_element(Surface&, const std::array<int, 4>& corners, int chain);
+/// surface.hpp for their order); that of a frustum if the surface is revolved. The area of a quad
+/// is that of its mean plane, so the sum of area * normal over a closed rim is exact.
+void add_element(Surface&, const std::array<int, 4>& corners, int chain, bool revolved = false);
 
 } // namespace rille::geometry

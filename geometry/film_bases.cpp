@@ -72,7 +72,8 @@ void FilmBases::follow(const Front& front) {
 double FilmBases::distance(int film, const Vec3& p) const {
     const Grid& grid = grids_[film];
     const double u[3] = {(p.x - domain_.x_min()) / domain_.spacing - 0.5,
-                         domain_.extruded() ? 0.0 : (p.y - domain_.y_min()) / domain_.spacing - 0.5,
+                         domain_.planar_contour() ? 0.0
+                                                  : (p.y - domain_.y_min()) / domain_.spacing - 0.5,
                          p.z / domain_.spacing - 0.5};
     int low[3];
     double part[3];
@@ -87,7 +88,7 @@ double FilmBases::distance(int film, const Vec3& p) const {
             weight *= (corner >> a & 1) ? part[a] : 1 - part[a];
         if (weight == 0) continue;
         const int i = fold_index(low[0] + (corner & 1), domain_.cells_x, domain_.sides);
-        const int j = domain_.extruded()
+        const int j = domain_.planar_contour()
                           ? 0
                           : fold_index(low[1] + (corner >> 1 & 1), domain_.cells_y, domain_.sides);
         sum += weight * value(grid, i, j, low[2] + (corner >> 2 & 1));

@@ -81,7 +81,7 @@ double Front::distance(const Vec3& p) const {
     const Band& band = state_->band;
     const Domain& d = band.domain;
     const double u[3] = {(p.x - d.x_min()) / d.spacing - 0.5,
-                         d.extruded() ? 0.0 : (p.y - d.y_min()) / d.spacing - 0.5,
+                         d.planar_contour() ? 0.0 : (p.y - d.y_min()) / d.spacing - 0.5,
                          p.z / d.spacing - 0.5};
     int low[3];
     double part[3];
@@ -96,7 +96,8 @@ double Front::distance(const Vec3& p) const {
             weight *= (corner >> a & 1) ? part[a] : 1 - part[a];
         if (weight == 0) continue;
         const int i = fold_index(low[0] + (corner & 1), d.cells_x, d.sides);
-        const int j = d.extruded() ? 0 : fold_index(low[1] + (corner >> 1 & 1), d.cells_y, d.sides);
+        const int j =
+            d.planar_contour() ? 0 : fold_index(low[1] + (corner >> 1 & 1), d.cells_y, d.sides);
         sum += weight * state_->index.phi(band, i, j, low[2] + (corner >> 2 & 1));
     }
     return sum;

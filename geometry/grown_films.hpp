@@ -1,6 +1,7 @@
 // SPDX-License-Identifier: Apache-2.0
 #pragma once
 
+#include "geometry/domain.hpp"
 #include "geometry/surface.hpp"
 
 #include <string>
@@ -32,6 +33,6 @@ struct GrownFilms {
 /// their integral to round-off (a concave corner merges, a convex one spreads); where nothing
 /// moved and the elements are the same, values are returned bit for bit.
 void carry_fields(const Surface& from, const Surface& to, const std::vector<double>& moved,
-                  double width_x, double width_y, bool periodic, std::vector<SurfaceField*> fields);
+                  const Domain&, const std::vector<SurfaceField*>& fields);
 
 } // namespace rille::geometry

@@ -12,7 +12,6 @@ namespace rille::geometry {
 namespace {
 
 constexpr double pi = 3.14159265358979323846;
-constexpr double narrow = 0.05; ///< [rad] below it a box of slopes counts as a small cone
 
 Tilt exact_tilt(double horizontal, double vertical) {
     const double length = std::sqrt(horizontal * horizontal + vertical * vertical);
@@ -27,18 +26,10 @@ double turn_of(double horizontal, double vertical) {
     return vertical < 0 ? 1 - vertical / sum : horizontal / sum;
 }
 
-constexpr int turn_bins = 128; ///< none wider than 1/32 rad
-
-/// arcsin(x) by its series, exact to rounding for |x| < 1/32.
-double short_arcsine(double x) {
-    const double q = x * x;
-    return x + x * q * (1.0 / 6 + q * (3.0 / 40 + q * (15.0 / 336 + q * (105.0 / 3456))));
-}
-
 } // namespace
 
-Tilt tilt_of(bool extruded, double gx, double gy, double gz) {
-    return exact_tilt(extruded ? gx : std::sqrt(gx * gx + gy * gy), gz);
+Tilt tilt_of(bool planar, double gx, double gy, double gz) {
+    return exact_tilt(planar ? gx : std::sqrt(gx * gx + gy * gy), gz);
 }
 
 RateTables::RateTables(const NormalRates& rates) : rates_(rates) {
@@ -110,6 +101,34 @@ Tilt RateTables::tilt(double horizontal, double vertical, double& length) const 
         t.sine = std::copysign(t.sine, horizontal);
     }
     return t;
+}
+
+void RateTables::look_up_marks(FluxLanes& lanes, int used) const {
+    for (int n = 0; n < used; ++n) {
+        const Tilt& mark = marks_[lanes.turn_bin[n]];
+        lanes.mark_angle[n] = mark.angle;
+        lanes.mark_sine[n] = mark.sine;
+        lanes.mark_cosine[n] = mark.cosine;
+    }
+}
+
+bool RateTables::look_up_nodes(FluxLanes& lanes, int n, const RateWindow& window) const {
+    const int s = segment(lanes.angle[n]), last = static_cast<int>(rates_.angles.size()) - 2;
+    const bool held = s > window.first && s + 2 < window.first + RateWindow::size;
+    if (!held || s < 1 || s >= last) return false;
+    const double *angle = rates_.angles.data() + s - 1,
+                 *value = window.value + (s - 1 - window.first);
+    for (int k = 0; k < 4; ++k) {
+        lanes.node_angle[k][n] = angle[k];
+        lanes.value[k][n] = value[k];
+    }
+    for (int k = 0; k < 3; ++k)
+        lanes.inverse_width[k][n] = inverse_width_[s - 1 + k];
+    for (int k = 0; k < 2; ++k) {
+        lanes.node_sine[k][n] = sine_[s + k];
+        lanes.node_cosine[k][n] = cosine_[s + k];
+    }
+    return true;
 }
 
 RateWindow RateTables::window(int row, double angle) const {
@@ -200,19 +219,12 @@ struct Box {
     double z_low, z_high;
 };
 
-double least_magnitude(double a, double b) {
-    return a * b <= 0 ? 0 : std::min(std::fabs(a), std::fabs(b));
-}
-double most_magnitude(double a, double b) {
-    return std::max(std::fabs(a), std::fabs(b));
-}
-
 /// `low` and `high` are the least and the largest magnitude along each axis.
-Box box_of(bool extruded, const Slopes& s, const double* low, const double* high) {
+Box box_of(bool planar, const Slopes& s, const double* low, const double* high) {
     Box b;
     b.z_low = std::min(s.minus[2], s.plus[2]);
     b.z_high = std::max(s.minus[2], s.plus[2]);
-    if (extruded) {
+    if (planar) {
         b.h_low = std::min(s.minus[0], s.plus[0]);
         b.h_high = std::max(s.minus[0], s.plus[0]);
         return b;
@@ -228,27 +240,27 @@ Tilt turned(const Tilt& t, double by) {
 }
 
 /// Wave speed over all tilts a box of slopes holds.
-WaveSpeed over_box(const RateTables& tables, int row, bool extruded, const Box& b, const Tilt& mean,
+WaveSpeed over_box(const RateTables& tables, int row, bool planar, const Box& b, const Tilt& mean,
                    const RateWindow& window) {
-    const double lowest = extruded ? -pi : 0;
+    const double lowest = planar ? -pi : 0;
     const double wide = b.h_high - b.h_low, high = b.z_high - b.z_low;
     const double square = wide * wide + high * high;
     const double h = 0.5 * (b.h_low + b.h_high), z = 0.5 * (b.z_low + b.z_high);
     const double middle = h * h + z * z;
-    if (square < narrow * narrow * middle) {
+    if (square < narrow_box * narrow_box * middle) {
         // The mean slopes lie in the box, so a cone about them as wide as its diagonal holds it.
         const double spread = 1.1 * std::sqrt(square / middle);
         const Tilt low = turned(mean, -spread), up = turned(mean, spread);
         if (low.angle >= lowest && up.angle <= pi)
             return tables.wave_speed_of_cone(row, low, up, window);
     }
-    const Tilt full_low{lowest, 0, extruded ? -1.0 : 1.0, -1}, full_high{pi, 0, -1, -1};
+    const Tilt full_low{lowest, 0, planar ? -1.0 : 1.0, -1}, full_high{pi, 0, -1, -1};
     const bool holds_origin = b.h_low <= 0 && b.h_high >= 0 && b.z_low <= 0 && b.z_high >= 0;
     if (holds_origin) return tables.wave_speed(row, full_low, full_high, window);
     Tilt corner[4] = {exact_tilt(b.h_low, b.z_low), exact_tilt(b.h_low, b.z_high),
                       exact_tilt(b.h_high, b.z_low), exact_tilt(b.h_high, b.z_high)};
     std::sort(corner, corner + 4, [](const Tilt& a, const Tilt& c) { return a.angle < c.angle; });
-    const bool wraps = extruded && b.h_low < 0 && b.h_high > 0 && b.z_high < 0;
+    const bool wraps = planar && b.h_low < 0 && b.h_high > 0 && b.z_high < 0;
     if (!wraps) return tables.wave_speed(row, corner[0], corner[3], window);
     // Facing down across +-pi: the tilts are those above the least positive and below the largest
     // negative corner.
@@ -261,7 +273,7 @@ WaveSpeed over_box(const RateTables& tables, int row, bool extruded, const Box& 
                 tables.wave_speed(row, full_low, negative, window));
 }
 
-std::array<double, 3> of_row(const RateTables& tables, int row, bool extruded, const Slopes& s,
+std::array<double, 3> of_row(const RateTables& tables, int row, bool planar, const Slopes& s,
                              const Tilt& mean, const RateWindow& window) {
     if (row < 0) return {0, 0, 0};
     double low[3], high[3];
@@ -279,19 +291,18 @@ std::array<double, 3> of_row(const RateTables& tables, int row, bool extruded, c
                 rate * share(high[1], low[0] * low[0] + low[2] * low[2]),
                 rate * share(high[2], low[0] * low[0] + low[1] * low[1])};
     }
-    const WaveSpeed w =
-        over_box(tables, row, extruded, box_of(extruded, s, low, high), mean, window);
-    if (extruded) return {w.horizontal, 0, w.vertical};
+    const WaveSpeed w = over_box(tables, row, planar, box_of(planar, s, low, high), mean, window);
+    if (planar) return {w.horizontal, 0, w.vertical};
     return {w.horizontal * share(high[0], low[1] * low[1]),
             w.horizontal * share(high[1], low[0] * low[0]), w.vertical};
 }
 
 std::array<double, 3> dissipation(const RateTables& tables, const RowPair& rows,
-                                  const RateWindow& window, bool extruded, const Slopes& s,
+                                  const RateWindow& window, bool planar, const Slopes& s,
                                   const Tilt& mean) {
-    std::array<double, 3> a = of_row(tables, rows.row, extruded, s, mean, window);
+    std::array<double, 3> a = of_row(tables, rows.row, planar, s, mean, window);
     if (rows.share > 0) {
-        const std::array<double, 3> other = of_row(tables, rows.other, extruded, s, mean, window);
+        const std::array<double, 3> other = of_row(tables, rows.other, planar, s, mean, window);
         for (int axis = 0; axis < 3; ++axis)
             a[axis] += rows.share * (other[axis] - a[axis]);
     }
@@ -315,37 +326,19 @@ double upwind_steepness(const Slopes& s, bool recedes, double& waves) {
 }
 
 double lax_friedrichs(const RateTables& tables, const RowPair& rows, const RateWindow& window,
-                      bool extruded, const Slopes& s, Speed& speed) {
-    FluxCell cell;
-    cell.rows = &rows;
-    cell.window = &window;
-    cell.slopes = s;
-    lax_friedrichs(tables, extruded, &cell, 1);
-    speed = cell.speed;
-    return cell.change;
-}
-
-void lax_friedrichs(const RateTables& tables, bool extruded, FluxCell* cells, int count) {
-    for (int n = 0; n < count; ++n) {
-        FluxCell& c = cells[n];
-        const double gx = c.slopes.mean(0), gy = c.slopes.mean(1);
-        const double across = extruded ? gx : std::sqrt(gx * gx + gy * gy);
-        c.mean = tables.tilt(across, c.slopes.mean(2), c.length);
-    }
-    for (int n = 0; n < count; ++n)
-        tables.find_segment(cells[n].mean);
-    for (int n = 0; n < count; ++n) {
-        FluxCell& c = cells[n];
-        const Slopes& s = c.slopes;
-        c.speed.rate = tables.rate(*c.rows, c.mean, *c.window);
-        const std::array<double, 3> a =
-            dissipation(tables, *c.rows, *c.window, extruded, s, c.mean);
-        c.speed.waves = a[0] + a[1] + a[2];
-        c.speed.smooth = smooth(s);
-        c.change = c.speed.rate * c.length;
-        for (int axis = 0; axis < 3; ++axis)
-            c.change += 0.5 * a[axis] * (s.plus[axis] - s.minus[axis]);
-    }
+                      bool planar, const Slopes& s, Speed& speed) {
+    const double gx = s.mean(0), gy = s.mean(1);
+    double length = 0;
+    Tilt mean = tables.tilt(planar ? gx : std::sqrt(gx * gx + gy * gy), s.mean(2), length);
+    tables.find_segment(mean);
+    speed.rate = tables.rate(rows, mean, window);
+    const std::array<double, 3> a = dissipation(tables, rows, window, planar, s, mean);
+    speed.waves = a[0] + a[1] + a[2];
+    speed.smooth = smooth(s);
+    double change = speed.rate * length;
+    for (int axis = 0; axis < 3; ++axis)
+        change += 0.5 * a[axis] * (s.plus[axis] - s.minus[axis]);
+    return change;
 }
 
 } // namespace rille::geometry

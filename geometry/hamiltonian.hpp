@@ -1,6 +1,7 @@
 // SPDX-License-Identifier: Apache-2.0
 #pragma once
 
+#include "geometry/flux_lanes.hpp"
 #include "geometry/rates.hpp"
 #include "geometry/slopes.hpp"
 
@@ -15,8 +16,8 @@ struct Tilt {
     double angle = 0, sine = 0, cosine = 1;
     int segment = -1; ///< of the rate tables, where the angle lies or near it; -1: not known
 };
-/// extruded: angle atan2(g.x, g.z); full: angle between g and +z.
-Tilt tilt_of(bool extruded, double gx, double gy, double gz);
+/// planar contour: angle atan2(g.x, g.z); full: angle between g and +z.
+Tilt tilt_of(bool planar, double gx, double gy, double gz);
 
 /// Largest |dH/dp| over a range of tilts for H(p) = R(tilt) |p|: along the horizontal direction of
 /// the normal and along z [nm/s].
@@ -60,6 +61,10 @@ public:
     /// segment is still to be found.
     Tilt tilt(double horizontal, double vertical, double& length) const;
     void find_segment(Tilt& t) const { t.segment = segment(t.angle); }
+    /// Sets what find_tilts and find_fluxes ask for in the first lanes, or in one lane whose row is
+    /// that of the window; false where the window does not hold it.
+    void look_up_marks(FluxLanes&, int used) const;
+    bool look_up_nodes(FluxLanes&, int lane, const RateWindow&) const;
     /// Part of `row` about `angle`.
     RateWindow window(int row, double angle) const;
     /// Rate at a tilt that came from `tilt`. The window is used for what it holds; the result is
@@ -126,22 +131,7 @@ struct Speed {
 
 /// dphi/dt [nm/s] of a cell by local Lax-Friedrichs: R(n) |grad phi| at the mean slopes plus, along
 /// each axis, half the largest |dH/dp| over the box of slopes times their difference.
-double lax_friedrichs(const RateTables&, const RowPair&, const RateWindow&, bool extruded,
+double lax_friedrichs(const RateTables&, const RowPair&, const RateWindow&, bool planar,
                       const Slopes&, Speed&);
-
-/// A cell with what `lax_friedrichs` is given and what it returns.
-struct FluxCell {
-    std::size_t cell = 0;
-    const RowPair* rows = nullptr;
-    const RateWindow* window = nullptr;
-    Slopes slopes;
-    Tilt mean;         ///< of the mean slopes, found on the way
-    double length = 0; ///< of the mean slopes
-    Speed speed;
-    double change = 0; ///< dphi/dt [nm/s]
-};
-/// The same for several cells, step by step: one cell is a long chain of operations that wait for
-/// each other, and the chains of several run side by side.
-void lax_friedrichs(const RateTables&, bool extruded, FluxCell* cells, int count);
 
 } // namespace rille::geometry

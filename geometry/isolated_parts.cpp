@@ -8,6 +8,8 @@ namespace rille::geometry {
 
 namespace {
 
+constexpr double pi = 3.14159265358979323846;
+
 /// Integrals over one chain; signs as for a solid, whose normals point outwards.
 struct Moments {
     double cover = 0;     ///< of n_z dA
@@ -16,10 +18,12 @@ struct Moments {
     Vec3 reference{0, 0, 0};
     double top = -1e300;
     bool started = false;
+    bool on_axis = false; ///< revolved: meets the axis
 };
 
 /// Adds a flat piece: its corners weigh alike in integrals of linear functions; products take the
-/// exact quadratic rule for a segment (Simpson) and a triangle (middles of the sides).
+/// exact rule for a segment (Simpson, exact for cubics as well: revolved needs them) and a triangle
+/// (middles of the sides).
 class Adder {
 public:
     explicit Adder(const Domain& domain) : domain_(domain) {}
@@ -41,22 +45,25 @@ private:
     void collect(Moments& m, const Vec3 (&points)[3], const double (&weights)[3], double nz) const {
         if (!m.started) m.reference = points[0];
         m.started = true;
-        m.cover += nz;
         // One offset for the whole piece: it may lie across a periodic side from the reference.
         const Vec3 offset = nearest_image(points[1] - m.reference) - (points[1] - m.reference);
         for (int n = 0; n < 3; ++n) {
             const Vec3 d = points[n] - m.reference + offset;
-            const double w = weights[n] * nz;
+            const double turned = domain_.revolved() ? 2 * pi * points[n].x : 1;
+            const double w = weights[n] * nz * turned;
+            m.cover += w;
             m.volume += w * points[n].z;
             m.moment +=
                 Vec3(d.x * points[n].z, d.y * points[n].z, 0.5 * points[n].z * points[n].z) * w;
             m.top = std::max(m.top, points[n].z);
+            m.on_axis = m.on_axis || (domain_.revolved() && points[n].x == 0);
         }
     }
     Vec3 nearest_image(Vec3 d) const {
         if (domain_.sides == Sides::mirror) return d;
         d.x -= domain_.width_x() * std::round(d.x / domain_.width_x());
-        if (!domain_.extruded()) d.y -= domain_.width_y() * std::round(d.y / domain_.width_y());
+        if (!domain_.planar_contour())
+            d.y -= domain_.width_y() * std::round(d.y / domain_.width_y());
         return d;
     }
 
@@ -71,6 +78,7 @@ IsolatedPart part_of(const Moments& m, int chain) {
     if (m.volume != 0) {
         const Vec3 mean = m.moment / m.volume;
         part.centre = Vec3(m.reference.x + mean.x, m.reference.y + mean.y, mean.z);
+        if (m.on_axis) part.centre.x = 0;
     }
     return part;
 }
@@ -95,7 +103,7 @@ std::vector<IsolatedPart> find_isolated_parts(const Domain& domain, const Surfac
         if (c[3] != c[2]) adder.add(m, vertex(0), vertex(2), vertex(3));
     }
 
-    const double base = domain.width_x() * (domain.extruded() ? 1 : domain.width_y());
+    const double base = domain.base_area();
     std::vector<int> sheets; // that span the period, from the top
     for (int c = 0; c < chains; ++c)
         if (std::fabs(moments[c].cover) > 0.5 * base) sheets.push_back(c);

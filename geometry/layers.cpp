@@ -72,7 +72,7 @@ int LayerFinder::film_inside(const Foot& foot) const {
 }
 
 Foot LayerFinder::past_sliver(int element, Foot foot) const {
-    if (band_.domain.extruded() || foot.corner) return foot;
+    if (band_.domain.planar_contour() || foot.corner) return foot;
     const int film = film_inside(foot);
     const Film& own = stack_.films()[film];
     const double depth = stack_.distance_to_interface(

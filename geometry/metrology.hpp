@@ -42,10 +42,10 @@ struct Lines {
     Measured left, right;
 };
 std::optional<Lines> lines_at(const Domain&, const Surface&, const FeatureSite&, double z);
-/// CD y: full width of the gap along y at height z (full only).
+/// CD y: full width of the gap along y at height z (not extruded).
 std::optional<Measured> cd_y_at(const Domain&, const Surface&, const FeatureSite&, double z);
 /// Area-equivalent CD: 2 sqrt(area / pi) of the level section round the axis at z, less pillars
-/// standing in it (full only).
+/// standing in it (full; revolved: twice the radius). Nothing in extruded.
 std::optional<Measured> cd_area_at(const Domain&, const Surface&, const FeatureSite&, double z);
 
 /// Bow CD: widest CD between z_low and z_high, and the height where it is (the highest of several).

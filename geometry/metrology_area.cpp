@@ -1,5 +1,6 @@
 // SPDX-License-Identifier: Apache-2.0
 #include "geometry/metrology.hpp"
+#include "geometry/section.hpp"
 
 #include <algorithm>
 #include <array>
@@ -148,11 +149,33 @@ bool inside(const std::vector<Piece>& pieces, const Loop& loop, double x, double
     return in;
 }
 
+/// revolved: the innermost disc of gas round the axis at height z, or the ring about a pillar.
+std::optional<Measured> area_between_rings(const Domain& domain, const Surface& surface,
+                                           const FeatureSite& site, double z) {
+    const Section section(domain, surface, 0, 0, 0, site.width_x);
+    double square = 0; // of the radius of a disc of the same area
+    Measured m;
+    for (const Section::Crossing& wall : section.level(z)) { // outwards
+        if (wall.u <= 0) continue;
+        const bool gas_inside = wall.piece->z1 > wall.piece->z0;
+        square += gas_inside ? wall.u * wall.u : -wall.u * wall.u;
+        m.elements.emplace_back(wall.piece->element, 2 * wall.u / std::fabs(wall.piece->normal_u));
+        if (gas_inside) break;
+    }
+    if (!(square > 0)) return {};
+    m.value = 2 * std::sqrt(square);
+    // Solid that moves out by d takes d / |n.u| from the gas on either side of the ring.
+    for (auto& [element, weight] : m.elements)
+        weight *= -1 / std::sqrt(square);
+    return m;
+}
+
 } // namespace
 
 std::optional<Measured> cd_area_at(const Domain& domain, const Surface& surface,
                                    const FeatureSite& site, double z) {
     if (domain.extruded()) return {};
+    if (domain.revolved()) return area_between_rings(domain, surface, site, z);
     const std::vector<Piece> pieces =
         with_images(domain, level_cut(surface, z, 1e-9 * domain.spacing), site);
     const std::vector<Loop> loops = closed_loops(pieces, 1e-7 * domain.spacing);

@@ -35,8 +35,9 @@ NearestElement::NearestElement(const Domain& domain, const Surface& surface)
     }
     z_low_ = z_low;
     nx_ = std::max(1, static_cast<int>(std::ceil(domain.width_x() / size_)));
-    ny_ =
-        domain.extruded() ? 1 : std::max(1, static_cast<int>(std::ceil(domain.width_y() / size_)));
+    ny_ = domain.planar_contour()
+              ? 1
+              : std::max(1, static_cast<int>(std::ceil(domain.width_y() / size_)));
     nz_ = surface.size() == 0 ? 1 : static_cast<int>((z_high - z_low) / size_) + 1;
     std::vector<long> cell(surface.size());
     first_.assign(static_cast<std::size_t>(nx_) * ny_ * nz_ + 1, 0);
@@ -61,8 +62,9 @@ long NearestElement::cell_of(int i, int j, int k) const {
 
 int NearestElement::operator()(const Vec3& p) const {
     const int i0 = static_cast<int>(std::floor((p.x - domain_.x_min()) / size_));
-    const int j0 =
-        domain_.extruded() ? 0 : static_cast<int>(std::floor((p.y - domain_.y_min()) / size_));
+    const int j0 = domain_.planar_contour()
+                       ? 0
+                       : static_cast<int>(std::floor((p.y - domain_.y_min()) / size_));
     const int k0 = static_cast<int>(std::floor((p.z - z_low_) / size_));
     const int widest = nx_ + ny_ + nz_ + std::abs(k0);
     int best = -1;
@@ -75,9 +77,10 @@ int NearestElement::operator()(const Vec3& p) const {
             const Vec3& c = surface_.centre[elements_[n]];
             const double dx =
                 separation(p.x, c.x, domain_.x_min(), domain_.width_x(), domain_.sides);
-            const double dy = domain_.extruded() ? 0.0
-                                                 : separation(p.y, c.y, domain_.y_min(),
-                                                              domain_.width_y(), domain_.sides);
+            const double dy =
+                domain_.planar_contour()
+                    ? 0.0
+                    : separation(p.y, c.y, domain_.y_min(), domain_.width_y(), domain_.sides);
             const double d2 = dx * dx + dy * dy + (p.z - c.z) * (p.z - c.z);
             if (d2 < best2 || (d2 == best2 && elements_[n] < best)) {
                 best2 = d2;
@@ -87,7 +90,7 @@ int NearestElement::operator()(const Vec3& p) const {
     };
     for (int ring = 0; ring <= widest; ++ring) {
         if (best >= 0 && best2 <= (ring - 1) * size_ * (ring - 1) * size_) break;
-        const int dj = domain_.extruded() ? 0 : ring;
+        const int dj = domain_.planar_contour() ? 0 : ring;
         for (int k = k0 - ring; k <= k0 + ring; ++k)
             for (int j = j0 - dj; j <= j0 + dj; ++j)
                 for (int i = i0 - ring; i <= i0 + ring; ++i)

@@ -40,6 +40,7 @@ OpeningOutlines::OpeningOutlines(const Domain& domain, const std::vector<Opening
     : domain_(domain) {
     const bool mirror = domain.sides == Sides::mirror;
     const auto images = [&](double c, double width) {
+        if (domain.revolved()) return std::vector<double>{c};
         if (mirror) return std::vector<double>{c, -width - c, width - c};
         return std::vector<double>{c, c - width, c + width};
     };

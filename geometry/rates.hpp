@@ -11,7 +11,7 @@ namespace rille::geometry {
 /// arrivals, for every material in reach of the step. Positive = etching (the solid recedes),
 /// negative = growth; nm/s.
 ///
-/// The normal enters through one angle. extruded: psi = atan2(n.x, n.z) in [-pi, pi]. full: the
+/// The normal enters through one angle. extruded and revolved: psi = atan2(n.x, n.z) in [-pi, pi]. full: the
 /// angle between n and +z in [0, pi], n turned in the vertical plane of the element's own normal.
 /// `angles` is shared by all tables, strictly increasing, covers the whole interval, and is dense
 /// where the rates bend (near walls under a narrow beam). Between angles rates are linear.

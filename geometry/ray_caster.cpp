@@ -1,6 +1,7 @@
 // SPDX-License-Identifier: Apache-2.0
 #include "geometry/ray_caster.hpp"
 
+#include "geometry/frustum_caster.hpp"
 #include "geometry/quad_caster.hpp"
 #include "geometry/segment_caster.hpp"
 
@@ -29,6 +30,7 @@ using CountsOfThreads =
 struct RayCaster::Impl {
     double z_open;
     std::optional<SegmentCaster> segments; ///< extruded
+    std::optional<FrustumCaster> frusta;   ///< revolved
     std::unique_ptr<QuadCaster> quads;     ///< full
     mutable CountsOfThreads counts;
 
@@ -43,7 +45,9 @@ struct RayCaster::Impl {
 RayCaster::RayCaster(const Domain& domain, const Surface& surface, double z_open)
     : impl_(std::make_unique<Impl>()) {
     impl_->z_open = z_open;
-    if (domain.extruded())
+    if (domain.revolved())
+        impl_->frusta.emplace(domain, surface, z_open);
+    else if (domain.extruded())
         impl_->segments.emplace(domain, surface, z_open);
     else
         impl_->quads = std::make_unique<QuadCaster>(domain, surface, z_open);
@@ -53,6 +57,7 @@ RayCaster::~RayCaster() = default;
 
 Hit RayCaster::trace(const Vec3& origin, const Vec3& direction, int from_element) const {
     const Hit hit = impl_->segments ? impl_->segments->trace(origin, direction, from_element)
+                    : impl_->frusta ? impl_->frusta->trace(origin, direction, from_element)
                                     : impl_->quads->trace(origin, direction, from_element);
     Counts& counts = impl_->counts.local();
     Counts::add_one(counts.traced);

@@ -11,7 +11,9 @@
 namespace rille::geometry {
 
 /// Where a ray ended. `direction` is the unit direction of flight at the end, after the folds at
-/// mirror sides; `point` lies inside the period. `lost` = numerically neither (counted).
+/// mirror sides; `point` lies inside the period. Revolved: both are turned about the axis so that
+/// the point lies in the half-plane y = 0, x >= 0, where the element's normal holds. `lost` =
+/// numerically neither (counted).
 struct Hit {
     enum class Kind : std::uint8_t { surface, open, lost };
     Kind kind = Kind::open;
@@ -23,8 +25,9 @@ struct Hit {
 
 /// First hits of straight rays on one Surface, with mirror or periodic sides built in. A ray that
 /// crosses z_open upwards is in the open; z_open must lie above the whole surface. Extruded: rays
-/// are three-dimensional, the surface infinite along y. Thread-safe; the same ray gives the same
-/// bits from any thread.
+/// are three-dimensional, the surface infinite along y. Revolved: three-dimensional likewise, from
+/// anywhere in the cell; the cylinder x = radius of the cell mirrors (frustum_caster.hpp says why).
+/// Thread-safe; the same ray gives the same bits from any thread.
 class RayCaster {
 public:
     RayCaster(const Domain&, const Surface&, double z_open);

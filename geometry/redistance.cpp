@@ -45,7 +45,7 @@ double redistance(Band& band, const Surface& surface, const ClosestElements& clo
     });
     if (changed.empty()) return 0;
 
-    const std::vector<double> old = band.phi;
+    const RawVector<double> old = band.phi;
     std::vector<char> flag(band.size(), 0);
     for (const int c : changed) {
         flag[c] = 1;
@@ -57,10 +57,10 @@ double redistance(Band& band, const Surface& surface, const ClosestElements& clo
         if (band.domain.sides == Sides::periodic) {
             const double wx = band.domain.width_x(), wy = band.domain.width_y();
             local.x -= wx * std::round((p.x - surface.centre[e].x) / wx);
-            if (!band.domain.extruded())
+            if (!band.domain.planar_contour())
                 local.y -= wy * std::round((p.y - surface.centre[e].y) / wy);
         }
-        const Vec3 foot = exact_nearest_point(surface, band.domain.extruded(), e, local);
+        const Vec3 foot = exact_nearest_point(surface, band.domain.planar_contour(), e, local);
         const double distance = std::max((local - foot).length(), 1e-12 * h);
         band.phi[c] = old[c] < 0 ? -distance : distance;
     }

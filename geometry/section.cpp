@@ -19,14 +19,19 @@ Vec3 on_plane(const Surface& s, int from, int to, int across, double plane) {
     return a + share * (b - a);
 }
 
+/// Image of a piece about u = 0, the gas on its left again.
+Section::Piece mirrored(const Section::Piece& p) {
+    return {-p.u1, p.z1, -p.u0, p.z0, -p.normal_u, p.normal_z, p.element, p.chain};
+}
+
 } // namespace
 
 Section::Section(const Domain& domain, const Surface& surface, int axis, double plane,
                  double centre, double width)
     : centre_(centre), width_(width) {
     std::vector<Piece> own;
-    if (domain.extruded()) {
-        RILLE_CHECK(axis == 0, "an extruded surface has no section along y");
+    if (domain.planar_contour()) {
+        RILLE_CHECK(axis == 0 || domain.revolved(), "an extruded surface has no section along y");
         for (std::size_t e = 0; e < surface.size(); ++e) {
             const Vec3 &a = surface.vertices[surface.corners[e][0]],
                        &b = surface.vertices[surface.corners[e][1]];
@@ -42,6 +47,12 @@ Section::Section(const Domain& domain, const Surface& surface, int axis, double 
         const double most = 0.5 * across - 1e-9 * domain.spacing;
         cut(surface, axis, std::clamp(plane, -most, most), own);
     }
+    if (domain.revolved()) { // the section through the axis: the contour and its mirror image
+        for (const Piece& p : own)
+            pieces_.push_back(mirrored(p));
+        pieces_.insert(pieces_.end(), own.begin(), own.end());
+        return;
+    }
     const double period = axis == 0 ? domain.width_x() : domain.width_y();
     for (const Piece& p : own)
         add(domain, p, period);
@@ -51,14 +62,8 @@ Section::Section(const Domain& domain, const Surface& surface, int axis, double 
 void Section::add(const Domain& domain, const Piece& in_period, double period) {
     const int middle = static_cast<int>(std::floor(centre_ / period + 0.5));
     for (int image = middle - 2; image <= middle + 2; ++image) {
-        Piece p = in_period;
-        if (domain.sides == Sides::mirror && image % 2 != 0) {
-            p.u0 = -in_period.u1;
-            p.z0 = in_period.z1;
-            p.u1 = -in_period.u0;
-            p.z1 = in_period.z0;
-            p.normal_u = -p.normal_u;
-        }
+        const bool turned = domain.sides == Sides::mirror && image % 2 != 0;
+        Piece p = turned ? mirrored(in_period) : in_period;
         p.u0 += image * period;
         p.u1 += image * period;
         if (std::max(p.u0, p.u1) >= centre_ - period && std::min(p.u0, p.u1) <= centre_ + period)

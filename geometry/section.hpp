@@ -11,7 +11,8 @@ namespace rille::geometry {
 
 /// A vertical cut through the surface near one feature: straight pieces in the plane (u, z), where
 /// u runs along x or y. Images beyond the sides are included, one period to either side of the
-/// axis, so a feature may lie across a side. Walking from a piece's start to its end the gas lies
+/// axis, so a feature may lie across a side; revolved: the cut through the axis of revolution, both
+/// halves, without images. Walking from a piece's start to its end the gas lies
 /// on the left.
 class Section {
 public:
@@ -35,7 +36,7 @@ public:
     /// At a vertex, `from_above` looks at the piece above it, `from_below` at the one below.
     enum class Side { from_above, from_below };
 
-    /// The cut y = `plane` with u = x (axis 0), or x = `plane` with u = y (axis 1; full only).
+    /// The cut y = `plane` with u = x (axis 0), or x = `plane` with u = y (axis 1; not extruded).
     /// `centre` and `width` of the opening along u [nm].
     Section(const Domain&, const Surface&, int axis, double plane, double centre, double width);
 

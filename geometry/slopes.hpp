@@ -54,9 +54,14 @@ inline double limited_bend(double near, double far, Limiter limiter) {
     return std::fabs(third) <= most ? third : std::copysign(most, near);
 }
 
-inline void slopes_along(const Band& band, const double* phi, std::size_t cell,
-                         double inverse_spacing, int axis, unsigned unseen, Limiter limiter,
-                         Slopes& out) {
+/// Differences of phi along an axis [nm]: from the neighbours on either side, and second ones here
+/// and at these neighbours.
+struct Differences {
+    double back = 0, ahead = 0, bend = 0, bend_left = 0, bend_right = 0;
+};
+
+inline Differences differences_along(const Band& band, const double* phi, std::size_t cell,
+                                     int axis, unsigned unseen) {
     const int c = static_cast<int>(cell);
     int left = band.neighbour[c][2 * axis], right = band.neighbour[c][2 * axis + 1];
     if (unseen >> 2 * axis & 1) left = -1;
@@ -65,12 +70,11 @@ inline void slopes_along(const Band& band, const double* phi, std::size_t cell,
     if (left < 0 || right < 0) {
         // The edge of the band: second-order differences from the side that is there.
         const int side = left < 0 ? 2 * axis + 1 : 2 * axis, next = left < 0 ? right : left;
-        if (next < 0) return;
+        if (next < 0) return {};
         const int next2 = band.neighbour[next][side];
         const double near = phi[next] - here, bend = next2 < 0 ? 0 : phi[next2] - phi[next] - near;
-        const double slope = (near - 0.5 * bend) * (left < 0 ? inverse_spacing : -inverse_spacing);
-        out.minus[axis] = out.plus[axis] = slope;
-        return;
+        const double rise = left < 0 ? near - 0.5 * bend : -(near - 0.5 * bend);
+        return {rise, rise, 0, 0, 0};
     }
     // Beyond a mirror side the second neighbour is the first one on the other side.
     int left2 = left == c ? right : band.neighbour[left][2 * axis];
@@ -78,10 +82,17 @@ inline void slopes_along(const Band& band, const double* phi, std::size_t cell,
     if (unseen >> (6 + 2 * axis) & 1) left2 = -1;
     if (unseen >> (7 + 2 * axis) & 1) right2 = -1;
     const double back = here - phi[left], ahead = phi[right] - here, bend = ahead - back;
-    const double bend_left = left2 < 0 ? bend : back - (phi[left] - phi[left2]);
-    const double bend_right = right2 < 0 ? bend : (phi[right2] - phi[right]) - ahead;
-    out.minus[axis] = (back + 0.5 * limited_bend(bend, bend_left, limiter)) * inverse_spacing;
-    out.plus[axis] = (ahead - 0.5 * limited_bend(bend, bend_right, limiter)) * inverse_spacing;
+    return {back, ahead, bend, left2 < 0 ? bend : back - (phi[left] - phi[left2]),
+            right2 < 0 ? bend : (phi[right2] - phi[right]) - ahead};
+}
+
+inline void slopes_along(const Band& band, const double* phi, std::size_t cell,
+                         double inverse_spacing, int axis, unsigned unseen, Limiter limiter,
+                         Slopes& out) {
+    const Differences d = differences_along(band, phi, cell, axis, unseen);
+    out.minus[axis] = (d.back + 0.5 * limited_bend(d.bend, d.bend_left, limiter)) * inverse_spacing;
+    out.plus[axis] =
+        (d.ahead - 0.5 * limited_bend(d.bend, d.bend_right, limiter)) * inverse_spacing;
 }
 
 /// Slopes along z at a cell whose neighbour on `side` (4 or 5) lies behind a face, `gap` [nm] away,

@@ -11,7 +11,7 @@ namespace rille::geometry {
 struct IsolatedPart {
     enum class Kind { closed_void, detached_solid };
     Kind kind = Kind::closed_void;
-    Vec3 centre;       ///< [nm]
+    Vec3 centre;       ///< [nm]; revolved: of a ring x is its mean distance from the axis
     double volume = 0; ///< [nm^3]; in extruded per nm of depth
     int chain = -1;    ///< its number in Surface::chain
 };

@@ -52,6 +52,7 @@ std::vector<Metric> list_from_json(const json& written) {
         Metric metric{m.at("name"), m.at("feature"), {}, m.at("unit"), 0, "", ""};
         if (!m.at("value").is_null()) metric.value = m.at("value").get<double>();
         if (m.at("sampling_error").is_number()) metric.sampling_error = m.at("sampling_error");
+        if (m.at("grid_error").is_number()) metric.grid_error = m.at("grid_error").get<double>();
         metric.definition = m.value("definition", "");
         metric.note = m.value("note", "");
         metrics.push_back(metric);
@@ -126,7 +127,9 @@ RunFolder read_run_folder(const std::string& path, const Case& c) {
     folder.path = path;
     folder.frames = frame_files(path);
     folder.record = run_record(path);
-    folder.can_be_resumed = fs::exists(fs::path(path) / output_names::state);
+    folder.can_be_resumed =
+        fs::exists(fs::path(path) / output_names::state) ||
+        (folder.record.is_null() && fs::exists(fs::path(path) / output_names::grids));
     read_metrics(folder, c);
     read_history(folder, c);
     return folder;

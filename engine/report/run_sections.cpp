@@ -64,6 +64,10 @@ std::string count_text(double value) {
     return value >= 1e6 ? fmt::format("{:.3g} million", value / 1e6) : fmt::format("{:.0f}", value);
 }
 
+DataTable::Cell error_cell(double error) {
+    return {error > 0 && error < 0.005 ? "<0.01" : rounded(error, error), shortest(error)};
+}
+
 } // namespace
 
 PageSection measured_section(const RunParts& p) {
@@ -75,7 +79,8 @@ PageSection measured_section(const RunParts& p) {
     if (several) table.columns.push_back({"opening"});
     table.columns.insert(table.columns.end(), {{"quantity", false, "", true},
                                                {"value", true},
-                                               {"± (95 %)", true},
+                                               {"± sampling (95 %)", true},
+                                               {"± grid (bound)", true},
                                                {"unit"},
                                                {"definition", false, "definition"}});
     for (const Metric& m : p.folder.metrics.metrics) {
@@ -83,14 +88,12 @@ PageSection measured_section(const RunParts& p) {
         if (several) row.push_back({m.feature});
         row.push_back({metric_label(m.name), m.name});
         if (m.value) {
-            row.push_back({rounded(*m.value, m.sampling_error), shortest(*m.value)});
-            row.push_back({m.sampling_error > 0 && m.sampling_error < 0.005
-                               ? "<0.01"
-                               : rounded(m.sampling_error, m.sampling_error),
-                           shortest(m.sampling_error)});
+            row.push_back({rounded(*m.value, m.error()), shortest(*m.value)});
+            row.push_back(error_cell(m.sampling_error));
+            row.push_back(m.grid_error ? error_cell(*m.grid_error)
+                                       : DataTable::Cell{"not assessed"});
         } else {
-            row.push_back({"none"});
-            row.push_back({""});
+            row.insert(row.end(), {{"none"}, {""}, {""}});
         }
         row.push_back({m.unit == "1" ? "" : m.unit});
         row.push_back({m.value ? m.definition : m.note + ". " + m.definition});
@@ -98,10 +101,13 @@ PageSection measured_section(const RunParts& p) {
     }
     section.html =
         table_html(table) +
-        "<p class=\"soft small\">± is the 95 % sampling error, from eight independent "
-        "batches. The error of the grid is not assessed: run half the spacing to see it. "
-        "The uncertainty of the parameters is not assessed.</p>\n" +
-        clearing_table(p);
+        "<p class=\"soft small\">The sampling error is that of 95 %, from eight independent "
+        "batches. " +
+        (p.folder.metrics.has_grid_errors()
+             ? "The grid error is a bound, from the same case on coarser grids. "
+             : "The error of the grid is not assessed: <code>--set grid_error=assessed</code> "
+               "runs the case on coarser grids too. ") +
+        "The uncertainty of the parameters is not assessed.</p>\n" + clearing_table(p);
     return section;
 }
 

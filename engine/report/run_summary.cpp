@@ -46,6 +46,7 @@ std::string openings_text(const Case& c) {
     if (shown < c.mask.openings.size())
         text += fmt::format("; and {} more", c.mask.openings.size() - shown);
     const geometry::Domain& d = c.domain;
+    if (d.revolved()) return text + ", in a round cell " + in_nm(2 * d.width_x()) + " across";
     text += d.extruded() ? ", in a period of " + in_nm(d.width_x())
                          : ", in a period of " + in_nm(d.width_x()) + " by " + in_nm(d.width_y());
     return text + (d.sides == geometry::Sides::mirror ? ", mirrored" : ", repeated");
@@ -121,13 +122,13 @@ bool is_key(const std::string& name) {
     return keys.count(name) || (cd && name != "bow cd");
 }
 
-std::string value_text(const Metric& m) {
-    return m.value ? with_error(*m.value, m.sampling_error) + unit_text(m.unit) : "none";
+std::string shown_value(const Metric& m) {
+    return m.value ? value_text(m) + unit_text(m.unit) : "none";
 }
 
 DataTable::Cell value_cell(const Metric* m) {
     if (!m) return {"", "", ""};
-    DataTable::Cell cell{value_text(*m)};
+    DataTable::Cell cell{shown_value(*m)};
     if (m->value) cell.copied = shortest(*m->value);
     return cell;
 }
@@ -268,11 +269,12 @@ std::string targets_html(const RunParts& p) {
     table.columns = {{"target", false, "", true}, {"value", true}, {"by the numbers"}, {"verdict"}};
     std::set<std::string> reasons;
     for (const TargetVerdict& v : metrics.targets) {
-        const Metric shown{v.metric, v.feature, v.value, v.unit, v.sampling_error, "", ""};
+        const Metric then{v.metric, v.feature, v.value, v.unit, v.sampling_error, "", ""};
+        const Metric* shown = v.after.empty() ? metrics.find(v.metric, v.feature) : &then;
         const std::string word = verdict_name(v.verdict);
         table.rows.push_back(
             {{several && !v.feature.empty() ? v.feature + ": " + v.target : v.target},
-             value_cell(&shown),
+             value_cell(shown),
              {verdict_name(v.by_numbers)},
              {word, "", "<span class=\"verdict " + word + "\">" + word + "</span>"}});
         if (!metrics.is_final && v.after.empty()) continue; // said once, below

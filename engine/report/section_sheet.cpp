@@ -31,8 +31,8 @@ double column_room(const Case& c) {
 /// The frame around every one of the sections.
 View frame_of(const Case& c, const std::vector<const Section*>& sections) {
     View v;
-    v.x_min = c.domain.x_min();
-    v.x_max = -c.domain.x_min();
+    v.x_min = -c.domain.x_max();
+    v.x_max = c.domain.x_max();
     double low = 0, high = 0;
     for (const Section* section : sections)
         for (const SectionLine& line : *section)
@@ -79,7 +79,9 @@ Svg sheet_of(const Case& c, const View& v, const std::string& subtitle) {
 std::string subtitle_of(const Case& c, const std::string& when) {
     std::string text = when;
     if (!c.chemistry.empty()) text += " · " + c.chemistry;
-    if (!c.domain.extruded()) text += " · section at y = " + rounded(section_y(c), 20) + " nm";
+    if (c.domain.revolved()) text += " · section through the axis";
+    if (!c.domain.planar_contour())
+        text += " · section at y = " + rounded(section_y(c), 20) + " nm";
     return text + fmt::format(" · spacing {:.4g} nm", c.domain.spacing);
 }
 

@@ -156,8 +156,18 @@ Section profile_outline(const std::string& csv, double tolerance_nm) {
     Section section;
     const std::size_t head = csv.find("x_nm,");
     const bool is_flat = csv.compare(head == std::string::npos ? 0 : head, 10, "x_nm,z_nm,") == 0;
-    section = is_flat ? flat_section(csv_numbers(csv, {"x_nm", "z_nm", "length_nm", "chain"}))
-                      : middle_section(csv_numbers(csv, {"x_nm", "y_nm", "z_nm", "area_nm2"}));
+    const bool is_half = csv.find("r_nm,z_nm,") != std::string::npos && head == std::string::npos;
+    if (is_half) {
+        section = flat_section(csv_numbers(csv, {"r_nm", "z_nm", "length_nm", "chain"}));
+        const std::size_t count = section.size();
+        for (std::size_t i = 0; i < count; ++i) { // the other side of the axis
+            section.push_back(section[i]);
+            for (auto& p : section.back().points)
+                p[0] = -p[0];
+        }
+    } else
+        section = is_flat ? flat_section(csv_numbers(csv, {"x_nm", "z_nm", "length_nm", "chain"}))
+                          : middle_section(csv_numbers(csv, {"x_nm", "y_nm", "z_nm", "area_nm2"}));
     for (SectionLine& line : section)
         line.points = thinned(line.points, tolerance_nm);
     return section;

@@ -122,7 +122,7 @@ SurfaceMesh surface_mesh(const SurfaceState& state, double spacing, std::size_t 
 
 PageSection surface_section(const RunParts& p, const SurfaceState& last, Page& page) {
     PageSection section{"surface", "The surface", "", false, "Surface"};
-    if (p.c.domain.extruded() || last.surface.size() == 0) return section;
+    if (p.c.domain.planar_contour() || last.surface.size() == 0) return section;
     const SurfaceMesh mesh = surface_mesh(last, p.c.domain.spacing, most_vertices);
     page.data.push_back({"surface-mesh", mesh_json(mesh, p.c).dump()});
     page.scripts.emplace_back("surface.js");

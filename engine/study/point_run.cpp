@@ -2,6 +2,7 @@
 #include "engine/study/point_run.hpp"
 
 #include "engine/case_file.hpp"
+#include "engine/grid_search.hpp"
 #include "engine/output_names.hpp"
 #include "engine/run.hpp"
 #include "engine/study/point_folder.hpp"
@@ -127,18 +128,28 @@ struct Attempt {
     PointRecord record;
 };
 
-/// The run itself; false if it was told to stop.
-bool follow(Attempt& attempt, const Case& the_case) {
-    OutputFolder out(attempt.place.path(), OutputFolder::Existing::keep);
+/// The runs that were done on other grids before a point was stopped.
+GridSearch left_grids(const Case& the_case, const Attempt& attempt) {
+    const std::string path = (fs::path(attempt.place.path()) / output_names::grids).string();
+    return GridSearch(the_case, fs::exists(path) ? read_file(path) : "", path);
+}
+
+/// One main run; false if it was told to stop.
+bool run_main(Attempt& attempt, GridSearch& grids, const GridSearch::Next& next,
+              OutputFolder& out) {
+    const Case& the_case = next.the_case;
     const StudyKeep& keep = attempt.work.study.keep;
     const RunParts on_the_way = parts_on_the_way(keep);
     const std::optional<RunState> state = left_state(the_case, attempt.place);
     RunOutput output(out, the_case, state ? state->frames : std::vector<SeriesEntry>(), on_the_way);
+    output.compare_with(grids);
     PointWatcher watcher(the_case, output, attempt.stop, attempt.progress);
     RunResult result = state ? resume_case(the_case, *state, watcher, attempt.stop)
                              : run_case(the_case, watcher, attempt.stop);
     rethrow_if_not_of_point(result.error);
     if (result.record.status == "interrupted") return false;
+    grids.add(next, result.error ? Metrics() : measure(the_case, result.last),
+              result.record.failure, result.record.wall_seconds);
     PointRecord& record = attempt.record;
     record.status =
         watcher.clogged() && !result.error ? study_names::clogged : result.record.status;
@@ -149,6 +160,24 @@ bool follow(Attempt& attempt, const Case& the_case) {
     if (result.error) record.exit_status = exit_status_of(result.error);
     output.finish(result, run_parts(result.error ? keep.failed : keep.each));
     out.remove(output_names::state);
+    return true;
+}
+
+/// The point with its companions; false if it was told to stop.
+bool follow(Attempt& attempt, const Case& the_case) {
+    OutputFolder out(attempt.place.path(), OutputFolder::Existing::keep);
+    GridSearch grids = left_grids(the_case, attempt);
+    GridWatch watch;
+    watch.save = [&](const std::string& text) { out.write(output_names::grids, text); };
+    for (bool is_first = true;; is_first = false) {
+        const auto next = run_companions(grids, watch, attempt.stop);
+        if (!next) return false;
+        if (next->kind == GridSearch::Next::Kind::end && !is_first) break;
+        if (!run_main(attempt, grids, *next, out)) return false;
+        if (grids.compares()) watch.save(grids.text());
+    }
+    attempt.record.seconds = grids.wall_seconds();
+    if (!grids.is_met()) attempt.record.warnings.push_back(grids.summary());
     return true;
 }
 

@@ -19,7 +19,8 @@ struct StudyTableColumn {
         input,      ///< what the study varies
         metric,     ///< what was measured
         error,      ///< 95 % sampling error of the metric in the column before
-        grid_error, ///< words
+        grid_bound, ///< bound on the grid error of a metric, where it was assessed
+        grid_error, ///< words: assessed or not
         target,     ///< "met", "missed" or "undecided"
         standing,   ///< number of parameters of one standing
         warnings,   ///< how many

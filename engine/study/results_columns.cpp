@@ -14,6 +14,7 @@ using Role = StudyTableColumn::Role;
 constexpr std::pair<Role, const char*> role_words[] = {
     {Role::point, "point"},     {Role::status, "status"},     {Role::input, "input"},
     {Role::metric, "metric"},   {Role::error, "error"},       {Role::grid_error, "grid_error"},
+    {Role::grid_bound, "grid_bound"},
     {Role::target, "target"},   {Role::standing, "standing"}, {Role::warnings, "warnings"},
     {Role::failure, "failure"}, {Role::seconds, "seconds"}};
 
@@ -94,6 +95,15 @@ StudyTableColumn error_column(const StudyTableColumn& metric, bool several) {
     return column;
 }
 
+StudyTableColumn grid_bound_column(const StudyTableColumn& metric, bool several) {
+    StudyTableColumn column = metric;
+    column.role = Role::grid_bound;
+    column.name = with_unit(
+        name_part(metric.label) + of_feature(metric.feature, several) + "_grid_error", metric.unit);
+    column.definition.clear();
+    return column;
+}
+
 StudyTableColumn target_column(const std::string& metric, const std::string& feature,
                                bool several) {
     StudyTableColumn column;
@@ -137,8 +147,9 @@ std::string header_text(const Study& study, const std::vector<StudyTableColumn>&
     for (const auto* list : {&study.warnings, &warnings})
         for (const std::string& warning : *list)
             text += "# warning: " + one_line(warning) + "\n";
-    text += "# errors: 95 % sampling errors (half widths); grid error and the uncertainty of the "
-            "parameters are not assessed\n";
+    text += "# errors: 95 % sampling errors (half widths); the column grid_error says where the "
+            "error of the grid was assessed, as a bound; the uncertainty of the parameters is not "
+            "assessed\n";
     text += std::string("# caution: ") + caution + "\n";
     std::string names;
     for (const StudyTableColumn& column : columns) {

@@ -15,6 +15,7 @@ StudyTableColumn metric_column(const std::string& metric, const std::string& fea
                                const std::string& unit, bool several,
                                const std::string& definition);
 StudyTableColumn error_column(const StudyTableColumn& metric, bool several);
+StudyTableColumn grid_bound_column(const StudyTableColumn& metric, bool several);
 StudyTableColumn target_column(const std::string& metric, const std::string& feature, bool several);
 
 /// All columns in their order: point, status, inputs, metrics with their errors, grid error,

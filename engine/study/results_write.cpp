@@ -117,9 +117,11 @@ private:
             results_.failures.push_back({name, record.status, one_line(record.failure)});
         if (!record.cpu_features_hash.empty()) cpu_kinds_[record.cpu_features_hash] = true;
         std::vector<std::string> metrics, targets;
-        if (is_result(record.status)) add_metrics(point, metrics, targets);
+        std::string grid_error = "not assessed";
+        if (is_result(record.status) && add_metrics(point, metrics, targets))
+            grid_error = "assessed";
         return joined(front(index, record)) + '\x1e' + joined(metrics) + '\x1e' + joined(targets) +
-               '\x1e' + joined(back(record)) + '\n';
+               '\x1e' + grid_error + '\x1e' + joined(back(record)) + '\n';
     }
 
     std::vector<std::string> front(std::size_t index, const PointRecord& record) const {
@@ -144,18 +146,21 @@ private:
         return cells;
     }
 
-    void add_metrics(const fs::path& point, std::vector<std::string>& metrics,
+    /// Whether any metric has a grid error.
+    bool add_metrics(const fs::path& point, std::vector<std::string>& metrics,
                      std::vector<std::string>& targets) {
+        bool any_grid_error = false;
         const std::string path = (point / output_names::metrics).string();
         try {
             const json in = json::parse(read_file(path));
             for (const json& metric : in.at("metrics"))
-                add_metric(metric, metrics);
+                any_grid_error |= add_metric(metric, metrics);
             for (const json& target : in.at("targets"))
                 add_target(target, metrics, targets);
         } catch (const json::exception& error) {
             throw OutputError(path, "cannot read the metrics of a point", error.what());
         }
+        return any_grid_error;
     }
 
     /// The verdict; of a value at the end of a step the value too, which no metric column holds.
@@ -167,13 +172,14 @@ private:
             json value = target;
             value["name"] = name += " after " + after;
             value["definition"] = "as it stood at the end of step " + after;
+            value["grid_error"] = nullptr;
             if (!value.at("unit").get<std::string>().empty()) add_metric(value, metrics);
         }
         put(targets, targets_.place(target_column(name, target.at("feature"), several_)),
             target.at("verdict"));
     }
 
-    void add_metric(const json& metric, std::vector<std::string>& cells) {
+    bool add_metric(const json& metric, std::vector<std::string>& cells) {
         const StudyTableColumn column =
             metric_column(metric.at("name"), metric.at("feature"), metric.at("unit"), several_,
                           metric.value("definition", ""));
@@ -181,9 +187,14 @@ private:
         metrics_.place(error_column(column, several_));
         const json& value = metric.at("value");
         put(cells, at + 1, "");
-        if (!value.is_number()) return;
+        if (!value.is_number()) return false;
         cells[at] = shortest(value.get<double>() + 0.0); // no -0
         cells[at + 1] = shortest(metric.value("sampling_error", 0.0));
+        const json& bound = metric.at("grid_error");
+        if (bound.is_number())
+            put(cells, metrics_.place(grid_bound_column(column, several_)),
+                shortest(bound.get<double>()));
+        return bound.is_number();
     }
 
     void assemble(const std::string& path) {
@@ -194,12 +205,13 @@ private:
         out << header_text(study_, columns, results_.warnings);
         for (std::string line; std::getline(rows, line);) {
             const std::size_t first = line.find('\x1e'), second = line.find('\x1e', first + 1),
-                              third = line.find('\x1e', second + 1);
+                              third = line.find('\x1e', second + 1),
+                              fourth = line.find('\x1e', third + 1);
             out << line.substr(0, first)
                 << padded(line.substr(first + 1, second - first - 1), metrics_.columns.size())
-                << ",not assessed"
+                << ',' << line.substr(third + 1, fourth - third - 1)
                 << padded(line.substr(second + 1, third - second - 1), targets_.columns.size())
-                << ',' << line.substr(third + 1) << '\n';
+                << ',' << line.substr(fourth + 1) << '\n';
         }
         if (!out.flush()) throw OutputError(path, "cannot write the file", "the disk may be full");
     }

@@ -4,6 +4,7 @@
 // notched disk (Zalesak, J. Comput. Phys. 31 (1979) 335).
 #include "geometry/band.hpp"
 #include "geometry/front.hpp"
+#include "geometry/keep_memory.hpp"
 #include "tests/bench/timing.hpp"
 
 #include <nlohmann/json.hpp>
@@ -313,6 +314,7 @@ nlohmann::json openvdb_disk(int cells, double angle) {
 } // namespace
 
 int main() {
+    keep_freed_memory(); // as the program does; it serves both sides
     openvdb::initialize();
     std::cout << sphere().dump() << std::endl;
     const int cells = 120; // the notch is 6 cells wide

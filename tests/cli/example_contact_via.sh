@@ -39,3 +39,20 @@ check(abs(value["top cd"] - value["top cd y"]) < 2, "CD x %s, CD y %s, a quarter
       % (value["top cd"], value["top cd y"]))
 check(40 < value["mask left"] < 64, "mask left %s" % value["mask left"])
 P
+
+# The same contact in r and z, finer.
+"$rille" run "$root/examples/contact-via/case.yaml" "${reduced[@]}" --set symmetry=revolved --set 'pitch=96 nm' \
+    --set 'spacing=4 nm' -o "$work/round" --quiet ||
+    { echo "FAILED: the revolved contact stops with status $?"; exit 1; }
+python3 - "$work/via" "$work/round" <<'P' || exit 1
+import json, sys
+def values(out):
+    return {m["name"]: m["value"] for m in json.load(open(out + "/metrics.json"))["metrics"]}
+full, revolved = values(sys.argv[1]), values(sys.argv[2])
+record = json.load(open(sys.argv[2] + "/run.json"))
+if record["numerics"]["lost_rays"] != 0:
+    sys.exit("FAILED: revolved: lost rays: %s" % record["numerics"]["lost_rays"])
+for name, apart in (("depth centre", 8), ("top cd", 6)):
+    if abs(full[name] - revolved[name]) > apart:
+        sys.exit("FAILED: %s: full %s, revolved %s" % (name, full[name], revolved[name]))
+P

@@ -180,8 +180,7 @@ struct Roof {
             const Surface next = extract_surface(front);
             for (auto& thickness : films.thickness) {
                 SurfaceField field{"film", Carry::per_area, thickness};
-                carry_fields(surface, next, report.moved, d.width_x(), d.width_y(), false,
-                             {&field});
+                carry_fields(surface, next, report.moved, d, {&field});
                 thickness = field.value;
             }
             surface = next;

@@ -34,7 +34,7 @@ double integral(const Surface& s, const std::vector<double>& v) {
 
 void carry(const Surface& from, const Surface& to, const std::vector<double>& moved,
            const Domain& d, std::vector<SurfaceField*> fields) {
-    carry_fields(from, to, moved, d.width_x(), d.width_y(), d.sides == Sides::periodic, fields);
+    carry_fields(from, to, moved, d, fields);
 }
 
 /// Largest relative deviation from `value` away from the sides and from places `skip` marks.

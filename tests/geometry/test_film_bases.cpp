@@ -40,8 +40,7 @@ struct CoatedFront {
             done += report.time;
             const Surface next = extract_surface(front);
             SurfaceField film{"film", Carry::per_area, films.thickness[0]};
-            carry_fields(surface, next, report.moved, d.width_x(), d.width_y(),
-                         d.sides == Sides::periodic, {&film});
+            carry_fields(surface, next, report.moved, d, {&film});
             films.thickness[0] = film.value;
             surface = next;
             if (!settles) continue;

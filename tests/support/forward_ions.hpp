@@ -43,9 +43,10 @@ inline IonWalkResult forward_ions(const geometry::Domain& domain, const geometry
         std::mt19937_64 random(seed * 1000003 + k);
         std::uniform_real_distribution<double> u(0, 1);
         for (int i = 0; i < per_chunk; ++i) {
-            const Vec3 start(domain.x_min() + u(random) * domain.width_x(),
-                             domain.extruded() ? 0 : domain.y_min() + u(random) * domain.width_y(),
-                             caster.z_open() - 1e-9);
+            Vec3 start(domain.x_min() + u(random) * domain.width_x(),
+                       domain.planar_contour() ? 0 : domain.y_min() + u(random) * domain.width_y(),
+                       caster.z_open() - 1e-9);
+            if (domain.revolved()) start.x = std::sqrt(start.x * domain.width_x());
             const auto ion =
                 source.distribution.sample({u(random), u(random), u(random), u(random)});
             double energy = ion.energy_ev, kept = 0;
@@ -72,7 +73,7 @@ inline IonWalkResult forward_ions(const geometry::Domain& domain, const geometry
     std::vector<double> area(bins, 0);
     for (std::size_t e = 0; e < surface.size(); ++e)
         if (bin[e] >= 0) area[bin[e]] += surface.area[e];
-    const double plane = domain.width_x() * (domain.extruded() ? 1 : domain.width_y());
+    const double plane = domain.base_area();
     const double count = double(per_chunk) * chunks;
     IonWalkResult result;
     for (int b = 0; b < bins; ++b) {

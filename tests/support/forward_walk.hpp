@@ -60,8 +60,9 @@ inline WalkResult forward_walk(const geometry::Domain& domain, const geometry::S
         out.sum.assign(bins, 0), out.squares.assign(bins, 0);
         for (int w = 0; w < per_chunk; ++w) {
             Vec3 p(domain.x_min() + u(random) * domain.width_x(),
-                   domain.extruded() ? 0 : domain.y_min() + u(random) * domain.width_y(),
+                   domain.planar_contour() ? 0 : domain.y_min() + u(random) * domain.width_y(),
                    caster.z_open() - 1e-9);
+            if (domain.revolved()) p.x = std::sqrt(p.x * domain.width_x()); // even over the disc
             Hit hit = caster.trace(p, cosine(random, {0, 0, -1}, 1), -1);
             int hits = 0, chosen = -1;
             while (hit.kind == Hit::Kind::surface) {
@@ -87,7 +88,7 @@ inline WalkResult forward_walk(const geometry::Domain& domain, const geometry::S
         for (int b = 0; b < bins; ++b)
             sum[b] += c.sum[b], squares[b] += c.squares[b];
     }
-    const double source = domain.width_x() * (domain.extruded() ? 1 : domain.width_y());
+    const double source = domain.base_area();
     for (int b = 0; b < bins; ++b) {
         const double scale = source / area[b], mean = sum[b] / walkers;
         r.flux.push_back(scale * mean);

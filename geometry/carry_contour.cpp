@@ -8,9 +8,9 @@ namespace rille::geometry {
 
 namespace {
 
-class ExtrudedCarrier {
+class ContourCarrier {
 public:
-    explicit ExtrudedCarrier(const CarryTask& task)
+    explicit ContourCarrier(const CarryTask& task)
         : task_(task), from_(task.from), to_(task.to), map_(task), arc_(map_.arc()) {}
 
     void run() {
@@ -31,9 +31,9 @@ private:
                 const int j = facing(e, map_.low(e));
                 now[j] += old[e] * (from_.area[e] / to_.area[j]);
             } else {
-                const double rise = slope(e, old) * from_.area[e];
+                const double rise = slope(e, old) * from_.length(e);
                 spread(e, old[e], length > 0 ? rise : -rise,
-                       length > 0 ? map_.low(e) : map_.high(e), std::fabs(length), now);
+                       length<0, length> 0 ? map_.low(e) : map_.high(e), std::fabs(length), now);
             }
         }
         return now;
@@ -61,16 +61,35 @@ private:
             return 0;
         const double left = old[e] - old[before], right = old[after] - old[e];
         if (left * right <= 0) return 0;
-        const double size = from_.area[e];
+        const double size = from_.length(e);
         const double middle =
-            2 * (left + right) / (from_.area[before] + 2 * size + from_.area[after]);
+            2 * (left + right) / (from_.length(before) + 2 * size + from_.length(after));
         const double most = 2 * std::min(std::fabs(left), std::fabs(right)) / size;
         return std::copysign(std::min(std::fabs(middle), most), left);
     }
 
+    /// Part [from, to] of [0, 1] of an old element along its arc: the share of its area there and
+    /// where the middle of that area lies, seen from the middle of the whole. What sweeps about an
+    /// axis has more area where it is farther out.
+    struct Part {
+        double share, off_middle;
+    };
+    Part part_of(int e, bool turned, double from, double to) const {
+        const double share = to - from, middle = 0.5 * (from + to);
+        if (!task_.revolved) return {share, middle - 0.5};
+        double r0 = from_.vertices[from_.corners[e][0]].x;
+        double r1 = from_.vertices[from_.corners[e][1]].x;
+        if (turned) std::swap(r0, r1);
+        if (!(r0 + r1 > 0)) return {share, middle - 0.5};
+        const double scale = 2 / (r0 + r1), slope = scale * (r1 - r0), own = scale * r0;
+        const double area = own + slope * middle; // per arc, 1 on average
+        const double spread = share * share * slope / 12;
+        return {share * area, middle + spread / area - (0.5 + slope / 12)};
+    }
+
     /// Lays an old element's amount on the stretch of new chain it covers, `rise` more at the end
-    /// than at the start.
-    void spread(int e, double value, double rise, const Place& start, double length,
+    /// than at the start; `turned`: from its end to its start.
+    void spread(int e, double value, double rise, bool turned, const Place& start, double length,
                 std::vector<double>& now) const {
         const ArcChain& c = map_.chains()[start.chain];
         int j = static_cast<int>(
@@ -89,14 +108,17 @@ private:
             }
             const bool ends_here = arc_[j + 1] - at >= rest;
             const double overlap = ends_here ? rest : arc_[j + 1] - at;
-            const double middle = 1 - (rest - 0.5 * overlap) / length; // of [0, 1]
-            const double mean = overlap == length ? value : value + rise * (middle - 0.5);
-            now[j] += mean * ((from_.area[e] / to_.area[j]) * (overlap / length));
+            const double from = 1 - rest / length;
+            const Part part = part_of(e, turned, from, from + overlap / length);
+            const double mean = overlap == length ? value : value + rise * part.off_middle;
+            const double share = overlap == length ? 1 : part.share;
+            now[j] += mean * ((from_.area[e] / to_.area[j]) * share);
             at = arc_[j + 1];
             rest = ends_here ? 0 : rest - overlap;
         }
         if (rest > 0)
-            now[c.last - 1] += value * (from_.area[e] / to_.area[c.last - 1]) * (rest / length);
+            now[c.last - 1] += value * (from_.area[e] / to_.area[c.last - 1]) *
+                               part_of(e, turned, 1 - rest / length, 1).share;
     }
 
     std::vector<double> values(const std::vector<double>& old) const {
@@ -166,8 +188,8 @@ private:
 
 } // namespace
 
-void carry_extruded(const CarryTask& task) {
-    ExtrudedCarrier(task).run();
+void carry_contour(const CarryTask& task) {
+    ContourCarrier(task).run();
 }
 
 } // namespace rille::geometry

@@ -64,20 +64,20 @@ void start_at_side(std::vector<Piece>& pieces) {
     if (start > 0) std::rotate(pieces.begin(), pieces.begin() + start, pieces.end());
 }
 
-void add_open(Surface& s, const ContourChain& chain, int number) {
+void add_open(Surface& s, const ContourChain& chain, int number, bool revolved) {
     const int size = static_cast<int>(chain.points.size()) - 1;
     for (int n = 0; n <= size; ++n) {
         s.vertices.push_back(chain.points[n].p);
         if (n == 0) continue;
         const int end = static_cast<int>(s.vertices.size()) - 1;
         const int e = static_cast<int>(s.size());
-        add_element(s, {end - 1, end, -1, -1}, number);
+        add_element(s, {end - 1, end, -1, -1}, number, revolved);
         s.previous.push_back(n > 1 ? e - 1 : -1);
         s.next.push_back(n < size ? e + 1 : -1);
     }
 }
 
-void add_loop(Surface& s, const std::vector<Piece>& pieces, int number) {
+void add_loop(Surface& s, const std::vector<Piece>& pieces, int number, bool revolved) {
     const int first = static_cast<int>(s.size()), size = static_cast<int>(pieces.size());
     const auto add_vertex = [&](const Vec3& p) {
         s.vertices.push_back(p);
@@ -89,7 +89,7 @@ void add_loop(Surface& s, const std::vector<Piece>& pieces, int number) {
         const int start = joined ? end : add_vertex(pieces[n].a);
         const bool closes = n + 1 == size && n > 0 && pieces[n].b == pieces[0].a;
         end = closes ? s.corners[first][0] : add_vertex(pieces[n].b);
-        add_element(s, {start, end, -1, -1}, number);
+        add_element(s, {start, end, -1, -1}, number, revolved);
         s.previous.push_back(first + (n + size - 1) % size);
         s.next.push_back(first + (n + 1) % size);
     }
@@ -116,15 +116,23 @@ int open_chain(const std::vector<ContourChain>& chains, const Domain& domain) {
     return best;
 }
 
+/// A bubble or crumb on the axis so small that no point of its outline is left but the two ends.
+bool lies_on_axis(const ContourChain& chain) {
+    return std::all_of(chain.points.begin(), chain.points.end(),
+                       [](const ContourPoint& q) { return q.p.x == 0; });
+}
+
 } // namespace
 
-Surface extract_extruded(const Band& band) {
+Surface extract_contour(const Band& band) {
     const Domain& domain = band.domain;
     std::vector<ContourChain> chains = contour_chains(band);
     for (ContourChain& chain : chains) {
         rebuild_corners(chain, domain);
         merge_slivers(chain, shortest_segment * domain.spacing);
     }
+    if (domain.revolved())
+        chains.erase(std::remove_if(chains.begin(), chains.end(), lies_on_axis), chains.end());
     const int open = open_chain(chains, domain);
     if (open > 0) std::rotate(chains.begin(), chains.begin() + open, chains.begin() + open + 1);
     Surface s;
@@ -133,9 +141,9 @@ Surface extract_extruded(const Band& band) {
         if (chain.closed) {
             std::vector<Piece> pieces = cut_at_sides(chain, domain);
             start_at_side(pieces);
-            add_loop(s, pieces, number++);
+            add_loop(s, pieces, number++, domain.revolved());
         } else {
-            add_open(s, chain, number++);
+            add_open(s, chain, number++, domain.revolved());
         }
     }
     return s;

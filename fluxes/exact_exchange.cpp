@@ -1,0 +1,195 @@
+// SPDX-License-Identifier: Apache-2.0
+#include "fluxes/exact_exchange.hpp"
+
+#include "fluxes/in_plane.hpp"
+#include "fluxes/open_sky.hpp"
+#include "geometry/check.hpp"
+
+#include <Eigen/Core>
+#include <tbb/blocked_range.h>
+#include <tbb/parallel_for.h>
+
+#include <algorithm>
+#include <cmath>
+
+namespace rille::fluxes {
+namespace {
+
+constexpr double pi = 3.14159265358979323846;
+
+/// The cosine law in the plane: half the flux for a unit of the sine.
+InPlane cosine_in_plane() {
+    InPlane plane;
+    plane.angle = {-0.5 * pi, 0.5 * pi};
+    plane.share = {0, 1};
+    plane.moment = {0, 0};
+    return plane;
+}
+
+using RowMatrix =
+    Eigen::Map<const Eigen::Matrix<double, Eigen::Dynamic, Eigen::Dynamic, Eigen::RowMajor>>;
+using Matrix = Eigen::Map<const Eigen::MatrixXd>;
+
+} // namespace
+
+bool ExactExchange::serves(const geometry::Domain& domain, const geometry::Surface& surface) {
+    return domain.extruded() && !OpenSky(domain, surface).floating_pieces();
+}
+
+ExactExchange::ExactExchange(const geometry::Domain& domain, const geometry::Surface& surface,
+                             const geometry::RayCaster& caster, const std::vector<int>& material,
+                             const PatchSizes& sizes) {
+    std::vector<int> order;
+    const std::vector<int> ends = string_ends(domain, surface, order);
+    patches_ = std::make_shared<Patches>(surface, caster, std::move(order), material, ends, sizes);
+    const OpenSky sky(domain, surface);
+    const InPlane cosine = cosine_in_plane();
+    direct_.assign(surface.size(), 0.0);
+    tbb::parallel_for(tbb::blocked_range<int>(0, static_cast<int>(size()), 64),
+                      [&](const tbb::blocked_range<int>& range) {
+                          for (int e = range.begin(); e != range.end(); ++e)
+                              if (patches_->patch_of(e) >= 0)
+                                  direct_[e] = std::clamp(sky.flux(cosine, e), 0.0, 1.0);
+                      });
+    std::vector<double> view(size());
+    for (std::size_t e = 0; e < size(); ++e)
+        view[e] = 1 - direct_[e];
+    patches_->set_view(surface, std::move(view));
+    exchange_ = string_factors(domain, surface, *patches_).exchange;
+    check_closure();
+}
+
+/// Factors between patches, and how well everything adds up.
+void ExactExchange::check_closure() {
+    const Patches& p = *patches_;
+    const std::size_t n = p.size(), columns = p.order().size();
+    mouth_.resize(n);
+    p.average(direct_.data(), mouth_.data());
+    coarse_.assign(n * n, 0.0);
+    std::vector<double> column(columns, 0.0);
+    for (std::size_t i = 0; i < n; ++i) {
+        mouth_[i] *= p.area(i);
+        double sum = mouth_[i];
+        for (std::size_t j = 0; j < n; ++j)
+            for (int k = p.first(j); k < p.first(j + 1); ++k) {
+                const double value = exchange_[i * columns + k];
+                coarse_[i * n + j] += value;
+                column[k] += value;
+                sum += value;
+            }
+        closure_defect_ = std::max(closure_defect_, std::fabs(sum / p.area(i) - 1));
+    }
+    for (std::size_t k = 0; k < columns; ++k) {
+        const int e = p.order()[k];
+        closure_defect_ =
+            std::max(closure_defect_, std::fabs(column[k] / p.element_area(e) + direct_[e] - 1));
+    }
+    for (std::size_t i = 0; i < n; ++i)
+        for (std::size_t j = 0; j < i; ++j) {
+            double &a = coarse_[i * n + j], &b = coarse_[j * n + i];
+            asymmetry_ = std::max(asymmetry_, std::fabs(a - b) / std::min(p.area(i), p.area(j)));
+            a = b = 0.5 * (a + b);
+        }
+}
+
+/// Mean arrivals at the patches from an emission of the elements.
+void ExactExchange::gather(const double* emitted, double* mean) const {
+    const auto n = static_cast<Eigen::Index>(patches_->size());
+    const auto columns = static_cast<Eigen::Index>(patches_->order().size());
+    Eigen::VectorXd in(columns);
+    for (Eigen::Index k = 0; k < columns; ++k)
+        in[k] = emitted[patches_->order()[k]];
+    Eigen::Map<Eigen::VectorXd> out(mean, n);
+    out.noalias() = RowMatrix(exchange_.data(), n, columns) * in;
+    for (Eigen::Index p = 0; p < n; ++p)
+        mean[p] /= patches_->area(p);
+}
+
+void ExactExchange::apply(int, const double* emitted, double* arrival) const {
+    std::vector<double> mean(patches_->size());
+    gather(emitted, mean.data());
+    std::fill(arrival, arrival + size(), 0.0);
+    patches_->spread(mean.data(), arrival);
+}
+
+/// Solves (1 - F t) change = defect between patches that give back the share t of what arrives.
+/// In B = t change the matrix a / t - a F is symmetric and positive definite: conjugate gradients
+/// with its diagonal as preconditioner. Patches with t = 0 emit nothing and are left out.
+int ExactExchange::correct(const std::vector<double>& emits, const std::vector<double>& defect,
+                           std::vector<double>& change) const {
+    constexpr double tolerance = 1e-4; // of a correction
+    constexpr int most = 5000;
+    const auto n = static_cast<Eigen::Index>(patches_->size());
+    const Matrix exchange(coarse_.data(), n, n);
+    Eigen::VectorXd inverse(n), weight(n), rhs(n), x = Eigen::VectorXd::Zero(n), image(n);
+    for (Eigen::Index p = 0; p < n; ++p) {
+        weight[p] = emits[p] > 0 ? patches_->area(p) / emits[p] : 0.0;
+        const double diagonal = weight[p] - exchange(p, p);
+        inverse[p] = emits[p] > 0 && diagonal > 0 ? 1 / diagonal : 0.0;
+        rhs[p] = inverse[p] > 0 ? patches_->area(p) * defect[p] : 0.0;
+    }
+    Eigen::VectorXd residual = rhs, ahead = inverse.cwiseProduct(residual), step = ahead;
+    double rho = residual.dot(ahead);
+    const double goal = tolerance * tolerance * rho;
+    int count = 0;
+    for (; rho > goal && count < most; ++count) {
+        image.noalias() = exchange * step;
+        for (Eigen::Index p = 0; p < n; ++p)
+            image[p] = inverse[p] > 0 ? weight[p] * step[p] - image[p] : 0.0;
+        const double length = rho / step.dot(image);
+        x += length * step;
+        residual -= length * image;
+        ahead = inverse.cwiseProduct(residual);
+        const double next = residual.dot(ahead);
+        step = ahead + (next / rho) * step;
+        rho = next;
+    }
+    if (!(rho <= goal)) throw NumericsError("the neutral transport equations did not converge");
+    image.noalias() = exchange * x;
+    for (Eigen::Index p = 0; p < n; ++p)
+        change[p] = defect[p] + image[p] / patches_->area(p);
+    return count;
+}
+
+/// Corrects by the factors between patches what the factors from elements leave as a defect.
+std::vector<double> ExactExchange::solve(const std::vector<double>& sticking,
+                                         const std::vector<double>& guess, int* iterations) const {
+    RILLE_CHECK(sticking.size() == size(), "one sticking per element");
+    const std::size_t n = patches_->size();
+    std::vector<double> x = guess.size() == size() ? guess : std::vector<double>(size(), 1.0);
+    std::vector<double> given(size()), emits(n), mean(n), now(n), change(n);
+    for (std::size_t e = 0; e < size(); ++e)
+        given[e] = 1 - sticking[e];
+    patches_->average(given.data(), emits.data());
+    for (std::size_t e = 0; e < size(); ++e)
+        given[e] = x[e] - direct_[e];
+    patches_->average(given.data(), mean.data());
+    constexpr int most_rounds = 100;
+    double before = HUGE_VAL;
+    for (int round = 0;; ++round) {
+        x = direct_;
+        patches_->spread(mean.data(), x.data());
+        for (std::size_t e = 0; e < size(); ++e)
+            given[e] = (1 - sticking[e]) * x[e];
+        gather(given.data(), now.data());
+        double size_of_defect = 0, size_of_all = 0;
+        for (std::size_t p = 0; p < n; ++p) {
+            now[p] -= mean[p];
+            size_of_defect += patches_->area(p) * now[p] * now[p];
+            size_of_all += mouth_[p] * mouth_[p] / patches_->area(p);
+        }
+        if (size_of_defect <= 1e-20 * size_of_all) break;
+        if (round == most_rounds || !(size_of_defect < before))
+            throw NumericsError("the neutral transport equations did not converge");
+        before = size_of_defect;
+        const int count = correct(emits, now, change);
+        if (iterations) *iterations += count;
+        for (std::size_t p = 0; p < n; ++p)
+            mean[p] += change[p];
+    }
+    for (double& value : x)
+        value = std::max(value, 0.0);
+    return x;
+}
+
+} // namespace rille::fluxes
