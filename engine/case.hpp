@@ -44,7 +44,8 @@ struct RecipeStep {
 struct Target {
     std::string metric; ///< "bottom cd", "bow", "mask left"
     std::optional<double> at_least, at_most;
-    std::string text; ///< as written
+    std::string text;  ///< as written
+    std::string after; ///< recipe step at whose end it is due; empty: at the end of the run
 };
 
 /// A file that the case names (chemistry, ion table), as it was when the case was read.

@@ -33,9 +33,9 @@ struct MaskBuilder {
         const Entry& cd = item["cd"];
         const std::string shape = item["shape"].text;
         if (result.domain.extruded() && (shape == "round" || shape == "elliptic")) {
-            problems.add(
-                item["shape"].at, item["shape"].path,
-                fmt::format("{} holes need symmetry: full; extruded has trench or lines", shape));
+            problems.add(item["shape"].at, item["shape"].path,
+                         fmt::format("{} holes need symmetry: {}; extruded has trench or lines",
+                                     shape, shape == "round" ? "revolved or full" : "full"));
             return;
         }
         if (result.domain.revolved() && !suits_round_cell(item, shape)) return;

@@ -1,8 +1,6 @@
 // SPDX-License-Identifier: Apache-2.0
 #include "engine/case_build.hpp"
 
-#include "engine/comparison.hpp"
-#include "engine/metrics.hpp"
 #include "engine/words.hpp"
 
 #include <fmt/format.h>
@@ -124,122 +122,6 @@ void add_default_places(Entry& places, const Case& result) {
     add("bottom", fmt::format("{} above {} bottom", length, film.name));
 }
 
-std::vector<MetricName> names_with(const std::vector<std::string>& labels, const Case& c) {
-    const Dimension length = Dimension::length, angle = Dimension::angle;
-    const bool is_full = !c.domain.extruded(); // holes are measured in y and by area
-    std::vector<MetricName> list;
-    for (const std::string& label : labels) {
-        for (const char* kind : {" cd", " cd_change"})
-            list.push_back({label + kind, length});
-        if (!is_full) list.push_back({label + " cd_loss", length});
-        for (const char* kind : {" cd y", " cd area"})
-            if (is_full) list.push_back({label + kind, length});
-    }
-    for (const char* name : {"bow", "bow cd", "bow depth", "depth centre", "depth edge",
-                             "microtrench depth", "undercut", "mask left"})
-        list.push_back({name, length});
-    for (const char* name : {"sidewall angle left", "sidewall angle right", "facet angle"})
-        list.push_back({name, angle});
-    list.push_back({"selectivity", std::nullopt});
-    if (const auto& contour = c.measured.contour) {
-        const bool several = contour->cut_most > contour->cut_least;
-        for (const double cut : {contour->cut_least, contour->cut_most})
-            list.push_back({contour_metric(cut, several), length});
-    }
-    for (const MeasuredCd& cd : c.measured.cds)
-        list.push_back({cd.place + " cd difference", length});
-    for (const geometry::Film& film : c.films)
-        if (film.name != "mask") list.push_back({film.name + " loss", length});
-    return list;
-}
-
-struct TargetReader {
-    const Entry& entry;
-    const std::string& metric; ///< as written; "NAME of OPENING" where there are several
-    const std::vector<MetricName>& known;
-    const std::vector<std::string>& openings;
-    Problems& problems;
-
-    void wrong(const std::string& message) { problems.add(entry.at, entry.path, message); }
-
-    /// What the target is about; nullptr and a problem if there is no such quantity.
-    const MetricName* quantity() {
-        std::string name = metric;
-        const std::size_t of = metric.rfind(" of ");
-        if (of != std::string::npos) {
-            const std::string opening = metric.substr(of + 4);
-            name = metric.substr(0, of);
-            if (std::find(openings.begin(), openings.end(), opening) == openings.end()) {
-                wrong(fmt::format("no opening is called {}; there are: {}{}", quoted(opening),
-                                  listed(openings, 8), did_you_mean(opening, openings)));
-                return nullptr;
-            }
-        }
-        std::vector<std::string> names;
-        for (const MetricName& one : known) {
-            if (one.name == name) return &one;
-            names.push_back(one.name);
-        }
-        wrong(fmt::format("no quantity is called {}; there are: {}{}", quoted(name),
-                          listed(names, 24), did_you_mean(name, names)));
-        return nullptr;
-    }
-
-    std::optional<double> value(const std::string& text, std::optional<Dimension> dimension) {
-        std::string error;
-        double result = 0;
-        if (dimension) {
-            const QuantityText read = parse_quantity(text, *dimension);
-            error = read.error;
-            result = read.value;
-        } else {
-            const NumberText read = split_number(text);
-            error = read.error;
-            if (error.empty() && !read.unit.empty())
-                error = quoted(text) + ": a number without a unit is due";
-            result = read.value;
-        }
-        if (error.empty()) return result;
-        wrong(error);
-        return std::nullopt;
-    }
-
-    Target read() {
-        Target target;
-        target.metric = metric;
-        target.text = entry.text;
-        const MetricName* measured = quantity();
-        if (!measured) return target;
-        const std::optional<Dimension> due = measured->dimension;
-        const std::string& text = entry.text;
-        const std::size_t to = text.find(" to ");
-        if (text.rfind("at least ", 0) == 0) {
-            target.at_least = value(text.substr(9), due);
-        } else if (text.rfind("at most ", 0) == 0) {
-            target.at_most = value(text.substr(8), due);
-        } else if (to != std::string::npos) {
-            read_range(text.substr(0, to), trimmed(text.substr(to + 4)), due, target);
-        } else {
-            const bool sign = text.find_first_of("<>=") != std::string::npos;
-            wrong(fmt::format("{} is not a goal; write at least X, at most X, or X to Y{}",
-                              quoted(text), sign ? " (signs such as >= are not read)" : ""));
-        }
-        return target;
-    }
-
-    /// "55 to 65 nm": the unit of the upper end holds for the lower one too.
-    void read_range(std::string low, const std::string& high, std::optional<Dimension> due,
-                    Target& target) {
-        const NumberText first = split_number(low), last = split_number(high);
-        if (first.error.empty() && first.unit.empty() && last.error.empty()) low += " " + last.unit;
-        target.at_most = value(high, due);
-        if (!target.at_most) return;
-        target.at_least = value(low, due);
-        if (target.at_least && *target.at_least > *target.at_most)
-            wrong(fmt::format("{}: the first value is the smaller one", quoted(entry.text)));
-    }
-};
-
 } // namespace
 
 void build_measure(Entry& root, Case& result, Problems& problems) {
@@ -258,28 +140,6 @@ void build_measure(Entry& root, Case& result, Problems& problems) {
                                      "there is no CD",
                                      quoted(entry.text), top));
         result.cd_places[label] = {entry.text, *z};
-    }
-}
-
-std::vector<MetricName> metric_names(const Case& c) {
-    std::vector<std::string> labels;
-    for (const auto& [label, place] : c.cd_places)
-        labels.push_back(label);
-    return names_with(labels, c);
-}
-
-void build_targets(const Entry& root, Case& result, Problems& problems) {
-    std::vector<std::string> labels; // also of heights that are wrong, which is said already
-    for (const auto& [label, entry] : root["measure"]["cd"].members)
-        labels.push_back(label);
-    const std::vector<MetricName> known = names_with(labels, result);
-    const std::vector<std::string> openings = opening_names(result);
-    for (const auto& [metric, entry] : root["targets"].members)
-        if (entry.is_good)
-            result.targets.push_back(TargetReader{entry, metric, known, openings, problems}.read());
-    for (const auto& [key, entry] : root["tool_log"].members) {
-        const YamlNode& raw = entry.raw;
-        result.tool_log.push_back(key + ": " + (raw.is_scalar() ? raw.text : what_it_is(raw)));
     }
 }
 

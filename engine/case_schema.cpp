@@ -118,6 +118,22 @@ Rule recipe_rule() {
                     "what is done");
 }
 
+Rule target_rule() {
+    const char* value_pattern = "^[+-]?[0-9.eE+-]+( *[a-zA-Z]+)?$";
+    return either_rule(
+        "",
+        {sentence_rule("", "at least X, at most X, or X to Y",
+                       "^(at least +.+|at most +.+|[^ ]+ *[^ ]* +to +.+)$",
+                       "the goal at the end of the run"),
+         map_rule("",
+                  {sentence_rule("at_least", "X", value_pattern, "lowest value that will do"),
+                   sentence_rule("at_most", "X", value_pattern, "highest value that will do"),
+                   text_rule("after", "step of the recipe at whose end the goal holds; default: "
+                                      "the end of the run")},
+                  "the goal at the end of a step")},
+        "the goal");
+}
+
 Rule measured_rule() {
     return map_rule(
         "measured",
@@ -180,12 +196,8 @@ Rule make_case_rules() {
                   "extruded: trenches and lines; revolved: one round hole about the axis of a "
                   "round cell; full: anything that repeats in x and y")
             .required();
-    Rule targets = dictionary_rule(
-        "targets",
-        sentence_rule("", "at least X, at most X, or X to Y",
-                      "^(at least +.+|at most +.+|[^ ]+ *[^ ]* +to +.+)$", "the goal")
-            .required(),
-        "goals for measured quantities, by their names");
+    Rule targets = dictionary_rule("targets", target_rule().required(),
+                                   "goals for measured quantities, by their names");
     Rule root = map_rule(
         "",
         {integer_rule("format", {1, 1}, "version of this form").required(),

@@ -86,12 +86,12 @@ private:
     Clock::time_point saved_;
 };
 
-/// The latest frame in a run's folder. Throws OutputError if there is none.
-std::string last_frame(const std::string& folder) {
-    const std::vector<std::string> frames = frame_files(folder);
+/// The frames in a run's folder. Throws OutputError if there is none.
+std::vector<std::string> some_frames(const std::string& folder) {
+    std::vector<std::string> frames = frame_files(folder);
     if (frames.empty())
         throw OutputError(folder, "looking for the frames of a run", "there are none here");
-    return frames.back();
+    return frames;
 }
 
 int threads_in_use(const CommonOptions& options) {
@@ -264,8 +264,13 @@ int measure_command(const std::string& folder, const CommonOptions& options) {
     namespace fs = std::filesystem;
     check_measure_overrides(options.overrides);
     const Case the_case = load((fs::path(folder) / output_names::resolved_case).string(), options);
-    const SurfaceState last = read_vtp(the_case, last_frame(folder));
-    Metrics metrics = measure(the_case, last);
+    RunFolder run;
+    run.path = folder;
+    run.frames = some_frames(folder);
+    run.record = run_record(folder);
+    run.can_be_resumed = fs::exists(fs::path(folder) / output_names::state);
+    Metrics metrics = measure(the_case, read_vtp(the_case, run.frames.back()),
+                              measured_after(the_case, run.frames, run.record), !run.is_stopped());
     const std::string grids = (fs::path(folder) / output_names::grids).string();
     if (fs::exists(grids)) GridSearch(the_case, read_file(grids), grids).assess(the_case, metrics);
     if (options.json)

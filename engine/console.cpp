@@ -98,6 +98,8 @@ std::string closing_text(const Case& c, const RunRecord& record, const Metrics& 
     for (const auto* list : {&c.warnings, &record.warnings})
         for (const std::string& warning : *list)
             text += "warning: " + warning + "\n";
+    if (record.status == "interrupted")
+        text += "rille resume " + folder + " takes it up from here\n";
     return text + standing_line(c) + "\nresults in " + folder + "\n" + caution + "\n";
 }
 

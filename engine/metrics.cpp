@@ -306,6 +306,14 @@ void find_clearing(const Case& c, const std::string& feature, const geometry::Fl
     }
 }
 
+std::vector<Metric> all_metrics(const Case& c, const SurfaceState& state) {
+    std::vector<Metric> metrics;
+    const std::vector<FeatureSite> sites = feature_sites(c);
+    for (std::size_t f = 0; f < sites.size(); ++f)
+        FeatureMeasurement(c, state, c.mask.openings[f], sites[f], metrics).all();
+    return metrics;
+}
+
 } // namespace
 
 std::vector<FeatureSite> feature_sites(const Case& c) {
@@ -334,19 +342,34 @@ double sampling_error(const Measured& measured,
     return sampling_error(deviation);
 }
 
-Metrics measure(const Case& c, const SurfaceState& state) {
+Metrics measure(const Case& c, const SurfaceState& state, std::vector<StepMetrics> after,
+                bool is_final) {
     Metrics result;
+    result.is_final = is_final;
     result.time_s = state.time_s;
+    result.metrics = all_metrics(c, state);
     const std::vector<FeatureSite> sites = feature_sites(c);
     for (std::size_t f = 0; f < sites.size(); ++f) {
-        FeatureMeasurement(c, state, c.mask.openings[f], sites[f], result.metrics).all();
         const auto floor = geometry::floor_of(c.domain, state.surface, sites[f]);
         if (floor) find_clearing(c, c.mask.openings[f].name, *floor, result.clearing);
     }
     result.comparison = compare_measured(c, state);
     for (Metric& metric : comparison_metrics(result.comparison))
         result.metrics.push_back(std::move(metric));
+    result.after = std::move(after);
     result.targets = judge_targets(c, result);
+    return result;
+}
+
+bool is_measured_after(const Case& c, const std::string& step) {
+    return std::any_of(c.targets.begin(), c.targets.end(),
+                       [&](const Target& target) { return target.after == step; });
+}
+
+StepMetrics measure_after(const Case& c, const SurfaceState& state, const std::string& step) {
+    StepMetrics result{step, state.time_s, all_metrics(c, state)};
+    for (Metric& metric : comparison_metrics(compare_measured(c, state)))
+        result.metrics.push_back(std::move(metric));
     return result;
 }
 

@@ -3,6 +3,7 @@
 
 #include "engine/comparison.hpp"
 #include "engine/history.hpp"
+#include "engine/metric.hpp"
 #include "engine/run_result.hpp"
 #include "engine/units.hpp"
 #include "geometry/metrology.hpp"
@@ -17,35 +18,26 @@ namespace rille::engine {
 struct Case;
 struct Target;
 
-/// A measured quantity. `value` is empty where the quantity does not exist (no wall at that height,
-/// no mask left); `note` then says why.
-struct Metric {
-    std::string name;    ///< "depth centre", "bottom cd", "stop loss"
-    std::string feature; ///< the opening's name
-    std::optional<double> value;
-    std::string unit;          ///< nm, deg, 1
-    double sampling_error = 0; ///< 95 %, same unit; 0 where nothing is sampled
-    std::string definition;
-    std::string note;
-    std::optional<double> grid_error = {}; ///< bound, same unit; empty where it was not assessed
-
-    /// What both errors make together: the root of the sum of their squares.
-    double error() const;
-};
-
 enum class Verdict { met, missed, undecided };
 
 struct TargetVerdict {
-    std::string target; ///< "bottom cd: 55 nm to 65 nm"
+    std::string target; ///< "bottom cd: 55 nm to 65 nm", "mask left after over: at least 40 nm"
     std::string metric, feature;
     Verdict verdict = Verdict::undecided;
     /// What the numbers alone say, before the standing of the parameters is asked.
     Verdict by_numbers = Verdict::undecided;
     std::string reason;
+    /// Recipe step at whose end the value stood; empty: the end of the run.
+    std::string after{};
+    std::optional<double> value{};
+    double sampling_error = 0; ///< 95 %, in `unit`
+    std::string unit{};
 };
 
 struct Metrics {
     double time_s = 0;
+    /// Of the end of the recipe, and not of where a run was stopped or failed.
+    bool is_final = true;
     std::vector<Metric> metrics;
     std::vector<TargetVerdict> targets;
     /// Lowest film that is open over the whole floor, and every film above it that is not: the
@@ -57,6 +49,9 @@ struct Metrics {
     };
     std::vector<Clearing> clearing;
     Comparison comparison; ///< with what was measured
+    /// At the ends of the steps that targets name, in the order of the recipe, so far as the run
+    /// came to them.
+    std::vector<StepMetrics> after;
 
     bool has_grid_errors() const;
     /// The metric of that name (of that feature if given), or null.
@@ -75,8 +70,14 @@ std::vector<MetricName> metric_names(const Case&);
 std::vector<geometry::FeatureSite> feature_sites(const Case&);
 
 /// Every metric that exists for the case's symmetry, with the targets judged. Definitions are in
-/// the metrics themselves.
-Metrics measure(const Case&, const SurfaceState&);
+/// the metrics themselves. `after`: what was measured at the ends of earlier steps. Targets for the
+/// end of a run that has not come to it (`is_final` false) stay undecided.
+Metrics measure(const Case&, const SurfaceState&, std::vector<StepMetrics> after = {},
+                bool is_final = true);
+/// Whether a target asks for values at the end of that recipe step.
+bool is_measured_after(const Case&, const std::string& step);
+/// The state at the end of a step, measured.
+StepMetrics measure_after(const Case&, const SurfaceState&, const std::string& step);
 /// Fills the measured columns of a history row.
 void measure_row(const Case&, const geometry::Surface&, HistoryRow&);
 

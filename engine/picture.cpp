@@ -224,7 +224,7 @@ double fitting(const std::string& text, double size, bool bold, double width) {
 }
 
 std::string subtitle(const PictureContext& p) {
-    std::string text = "after " + time_text(p.last.time_s);
+    std::string text = "after " + time_text(p.last.time_s) + unfinished_words(p.metrics);
     if (!p.c.chemistry.empty()) text += " · " + p.c.chemistry;
     if (p.c.domain.revolved()) text += " · section through the axis";
     if (!p.c.domain.planar_contour())
@@ -268,6 +268,10 @@ std::string front_colour(std::size_t index, std::size_t count) {
         return static_cast<int>(std::lround(light + t * (dark - light)));
     };
     return fmt::format("#{:02x}{:02x}{:02x}", mix(0x9f, 0x10), mix(0xb4, 0x24), mix(0xd8, 0x60));
+}
+
+std::string unfinished_words(const Metrics& metrics) {
+    return metrics.is_final ? "" : ", stopped before its end";
 }
 
 std::string time_text(double seconds) {

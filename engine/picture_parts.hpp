@@ -45,6 +45,8 @@ inline constexpr const char* measured_style =
 std::string front_colour(std::size_t index, std::size_t count);
 /// "1.5 s", "40 s".
 std::string time_text(double seconds);
+/// Beside the time of a picture that is not of the end of its run: ", stopped before its end".
+std::string unfinished_words(const Metrics&);
 /// The 1-2-5 number nearest below `value`.
 double round_length(double value);
 

@@ -268,6 +268,15 @@ void write_arc_data(Course& run) {
     run.observer.surveyed(flux);
 }
 
+/// Measures at the end of a step if a target asks for it; whether it was.
+bool measure_step_end(Course& run, std::size_t index) {
+    const std::string& step = run.the_case.steps[index].name;
+    if (!is_measured_after(run.the_case, step)) return false;
+    run.state.after.push_back(
+        measure_after(run.the_case, snapshot(run.the_case, run.simulation), step));
+    return true;
+}
+
 /// One refresh, told to the observer.
 void one_refresh(Course& run) {
     Simulation& simulation = run.simulation;
@@ -283,11 +292,12 @@ void one_refresh(Course& run) {
     run.observer.progressed(simulation, history.back(), run.expected.share(index, of_step));
     if (simulation.time_s() >= arc_data_s * (1 - 1e-12)) write_arc_data(run);
     const bool frame_due = simulation.time_s() >= run.state.next_frame_s * (1 - 1e-12);
-    if (frame_due) {
-        if (!simulation.finished()) run.observer.framed(snapshot(run.the_case, simulation));
-        run.state.next_frame_s += run.frame_interval();
-    }
-    if (!simulation.finished()) run.observer.resumable(frame_due, [&] { return run.saved(); });
+    const bool asked = simulation.step_index() > index && measure_step_end(run, index);
+    if ((frame_due || asked) && !simulation.finished())
+        run.observer.framed(snapshot(run.the_case, simulation));
+    if (frame_due) run.state.next_frame_s += run.frame_interval();
+    if (!simulation.finished())
+        run.observer.resumable(frame_due || asked, [&] { return run.saved(); });
 }
 
 /// Steps to the end of the recipe, or until `stop` is set.
@@ -318,6 +328,7 @@ RunResult follow_recipe(Course& run) {
     record.resumed = run.state.resumed;
     record.wall_seconds = run.wall_seconds();
     result.history = std::move(run.state.history);
+    result.after = std::move(run.state.after);
     const auto front = std::make_shared<geometry::Front>(simulation.front());
     result.write_level_set = [front](const std::string& path) { front->write_vdb(path); };
     return result;

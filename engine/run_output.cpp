@@ -114,15 +114,15 @@ Metrics RunOutput::finish(const RunResult& result, const RunParts& parts) {
     if (parts.profile) folder_.write(output_names::profile, profile_csv(case_, result.last));
     if (parts.profile && !result.last.removed.empty())
         folder_.write(output_names::causes, causes_csv(case_, result.last));
-    Metrics metrics = measure(case_, result.last);
-    const bool is_whole = result.record.status == "done" || result.record.status == "not cleared";
-    if (grids_ && is_whole) grids_->assess(case_, metrics);
+    Metrics metrics =
+        measure(case_, result.last, result.after, is_at_its_end(result.record.status));
+    if (grids_ && metrics.is_final) grids_->assess(case_, metrics);
     folder_.write(output_names::metrics, json_text(metrics_json(case_, metrics)));
     if (parts.profile && !metrics.comparison.contours.empty())
         folder_.write(output_names::comparison, comparison_csv(case_, metrics.comparison));
     if (parts.level_set && result.write_level_set)
         folder_.write_with(output_names::level_set, result.write_level_set);
-    if (is_whole) folder_.remove(output_names::state);
+    if (metrics.is_final) folder_.remove(output_names::state);
     if (parts.pictures) write_pictures(result, metrics);
     if (!parts.frames) remove_frames();
     if (parts.record) write_record(result);

@@ -64,6 +64,10 @@ json machine_json(const RunRecord& record) {
 
 } // namespace
 
+bool is_at_its_end(const std::string& status) {
+    return status == "done" || status == "not cleared";
+}
+
 json record_json(const Case& c, const RunRecord& record, const std::vector<std::string>& files) {
     json timings = json::object();
     for (const PhaseTime& phase : record.timings)

@@ -46,6 +46,9 @@ struct RunRecord {
     std::uint64_t peak_memory_bytes = 0;
 };
 
+/// Whether a run of that status went through its whole recipe: "done", "not cleared".
+bool is_at_its_end(const std::string& status);
+
 /// run.json. `files` is what the folder holds.
 nlohmann::json record_json(const Case&, const RunRecord&, const std::vector<std::string>& files);
 

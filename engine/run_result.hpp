@@ -2,6 +2,7 @@
 #pragma once
 
 #include "engine/history.hpp"
+#include "engine/metric.hpp"
 #include "engine/run_record.hpp"
 #include "fluxes/surface_step.hpp"
 #include "geometry/grown_films.hpp"
@@ -51,6 +52,7 @@ void fill_state(SurfaceState& state, const Case&, const fluxes::SurfaceStep&);
 struct RunResult {
     SurfaceState last;
     std::vector<HistoryRow> history;
+    std::vector<StepMetrics> after; ///< at the ends of the steps that targets name
     RunRecord record;
     std::exception_ptr error; ///< what stopped the run, null unless record.status is "failed"
     /// Writes the level set to the path given; empty = no such file.

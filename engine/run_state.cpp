@@ -9,7 +9,7 @@
 namespace rille::engine {
 namespace {
 
-const std::string mark = "rille state 1\n";
+const std::string mark = "rille state 2\n";
 
 template <class Archive, class Row>
 void visit_row(Archive& archive, Row& row) {
@@ -35,6 +35,31 @@ void visit_row(Archive& archive, Row& row) {
     }
 }
 
+void visit_size(StateWriter& archive, const std::vector<Metric>& list) {
+    archive(list.size());
+}
+void visit_size(StateReader& archive, std::vector<Metric>& list) {
+    std::size_t size = 0;
+    archive(size);
+    list.resize(size);
+}
+
+template <class Archive, class Step>
+void visit_step(Archive& archive, Step& after) {
+    archive(after.step);
+    archive(after.time_s);
+    visit_size(archive, after.metrics);
+    for (auto& metric : after.metrics) {
+        archive(metric.name);
+        archive(metric.feature);
+        archive(metric.value);
+        archive(metric.unit);
+        archive(metric.sampling_error);
+        archive(metric.definition);
+        archive(metric.note);
+    }
+}
+
 template <class Archive, class State>
 void visit_state(Archive& archive, State& state) {
     archive(state.simulation);
@@ -48,6 +73,8 @@ void visit_state(Archive& archive, State& state) {
     }
     for (auto& row : state.history)
         visit_row(archive, row);
+    for (auto& after : state.after)
+        visit_step(archive, after);
 }
 
 } // namespace
@@ -69,6 +96,7 @@ std::string state_text(const Case& c, const RunState& state) {
     archive(c.mask.openings.size());
     archive(state.history.size());
     archive(state.frames.size());
+    archive(state.after.size());
     visit_state(archive, state);
     return mark + content_hash(archive.text()) + "\n" + archive.text();
 }
@@ -84,15 +112,17 @@ RunState read_state(const Case& c, const std::string& text, const std::string& p
         throw wrong("the file is damaged");
     StateReader archive(std::string_view(text).substr(body));
     std::string of_case;
-    std::size_t features = 0, rows = 0, frames = 0;
+    std::size_t features = 0, rows = 0, frames = 0, steps = 0;
     archive(of_case);
     if (of_case != case_hash(c)) throw wrong("the case beside it was changed since");
     archive(features);
     archive(rows);
     archive(frames);
+    archive(steps);
     RunState state;
     state.frames.resize(frames);
     state.history.resize(rows);
+    state.after.resize(steps);
     for (HistoryRow& row : state.history)
         row.features.resize(features);
     visit_state(archive, state);

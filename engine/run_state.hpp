@@ -2,6 +2,7 @@
 #pragma once
 
 #include "engine/history.hpp"
+#include "engine/metric.hpp"
 #include "engine/run_record.hpp"
 #include "engine/vtk_files.hpp"
 
@@ -16,6 +17,7 @@ struct Case;
 struct RunState {
     std::string simulation;          ///< as Simulation::save gives it
     std::vector<HistoryRow> history; ///< up to there
+    std::vector<StepMetrics> after;  ///< at the ends of the steps that targets name
     double next_frame_s = 0;         ///< time of the next frame [s]
     std::vector<SeriesEntry> frames; ///< written so far
     double wall_seconds = 0;         ///< spent so far

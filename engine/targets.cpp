@@ -61,12 +61,21 @@ std::string range_text(const Target& target, const std::string& unit) {
     return "at most " + (target.at_most ? rounded(*target.at_most) : "?") + suffix;
 }
 
-TargetVerdict judge_metric(const Case& c, const Target& target, const Metric& metric) {
+/// "mask left after over: at least 40 nm"
+std::string full_text(const Target& target, const std::string& range) {
+    return target.metric + (target.after.empty() ? "" : " after " + target.after) + ": " + range;
+}
+
+TargetVerdict judge_metric(const Case& c, const Target& target, const Metric& metric, bool is_due) {
     TargetVerdict result;
-    result.target = target.metric + ": " +
-                    (target.text.empty() ? range_text(target, metric.unit) : target.text);
+    result.target =
+        full_text(target, target.text.empty() ? range_text(target, metric.unit) : target.text);
     result.metric = metric.name;
     result.feature = metric.feature;
+    result.after = target.after;
+    result.value = metric.value;
+    result.sampling_error = metric.sampling_error;
+    result.unit = metric.unit;
     if (metric.value) {
         result.by_numbers = judge(*metric.value, metric.error(), target);
         result.reason = with_error(*metric.value, metric.error()) +
@@ -77,6 +86,11 @@ TargetVerdict judge_metric(const Case& c, const Target& target, const Metric& me
         result.reason = "no such value: " + metric.note;
     }
     result.verdict = result.by_numbers;
+    if (!is_due) {
+        result.verdict = Verdict::undecided;
+        result.reason = "the run has not come to its end; where it stands: " + result.reason;
+        return result;
+    }
     const std::string weak = weak_parameters(c);
     if (!weak.empty() && result.by_numbers != Verdict::undecided) {
         result.verdict = Verdict::undecided;
@@ -84,6 +98,14 @@ TargetVerdict judge_metric(const Case& c, const Target& target, const Metric& me
             fmt::format("; {} by the numbers, but {}", verdict_name(result.by_numbers), weak);
     }
     return result;
+}
+
+/// What a target is judged by; null where the run has not come to the end of its step.
+const std::vector<Metric>* values_of(const Metrics& metrics, const Target& target) {
+    if (target.after.empty()) return &metrics.metrics;
+    for (const StepMetrics& step : metrics.after)
+        if (step.step == target.after) return &step.metrics;
+    return nullptr;
 }
 
 json metric_json(const Metric& m) {
@@ -100,6 +122,33 @@ json metric_json(const Metric& m) {
     else
         entry["note"] = m.note;
     return entry;
+}
+
+json verdict_json(const TargetVerdict& v) {
+    json entry = {{"target", v.target},
+                  {"metric", v.metric},
+                  {"feature", v.feature},
+                  {"after", v.after},
+                  {"value", nullptr},
+                  {"unit", v.unit},
+                  {"sampling_error", v.sampling_error},
+                  {"verdict", verdict_name(v.verdict)},
+                  {"by_numbers", verdict_name(v.by_numbers)},
+                  {"reason", v.reason}};
+    if (v.value) entry["value"] = *v.value;
+    return entry;
+}
+
+/// Everything that was measured at the ends of steps.
+json after_json(const std::vector<StepMetrics>& steps) {
+    json list = json::array();
+    for (const StepMetrics& step : steps) {
+        json values = json::array();
+        for (const Metric& m : step.metrics)
+            values.push_back(metric_json(m));
+        list.push_back({{"step", step.step}, {"time_s", step.time_s}, {"metrics", values}});
+    }
+    return list;
 }
 
 json open_parameters_json(const Case& c) {
@@ -184,17 +233,23 @@ std::vector<TargetVerdict> judge_targets(const Case& c, const Metrics& metrics) 
             feature = name.substr(of + 4);
             name.resize(of);
         }
+        const std::vector<Metric>* values = values_of(metrics, target);
         bool found = false;
-        for (const Metric& metric : metrics.metrics)
-            if (metric.name == name && (feature.empty() || metric.feature == feature)) {
-                verdicts.push_back(judge_metric(c, target, metric));
-                found = true;
-            }
+        if (values)
+            for (const Metric& metric : *values)
+                if (metric.name == name && (feature.empty() || metric.feature == feature)) {
+                    verdicts.push_back(
+                        judge_metric(c, target, metric, metrics.is_final || !target.after.empty()));
+                    found = true;
+                }
         if (!found) {
             TargetVerdict none;
-            none.target = target.metric + ": " + target.text;
+            none.target = full_text(target, target.text);
             none.metric = name;
-            none.reason = "this case has no metric of that name";
+            none.feature = feature;
+            none.after = target.after;
+            none.reason = values ? "this case has no metric of that name"
+                                 : "nothing is known of the end of step " + target.after;
             verdicts.push_back(none);
         }
     }
@@ -206,12 +261,7 @@ json metrics_json(const Case& c, const Metrics& metrics) {
     for (const Metric& m : metrics.metrics)
         list.push_back(metric_json(m));
     for (const TargetVerdict& v : metrics.targets)
-        targets.push_back({{"target", v.target},
-                           {"metric", v.metric},
-                           {"feature", v.feature},
-                           {"verdict", verdict_name(v.verdict)},
-                           {"by_numbers", verdict_name(v.by_numbers)},
-                           {"reason", v.reason}});
+        targets.push_back(verdict_json(v));
     for (const Metrics::Clearing& entry : metrics.clearing)
         clearing.push_back({{"feature", entry.feature},
                             {"film", entry.film},
@@ -219,6 +269,7 @@ json metrics_json(const Case& c, const Metrics& metrics) {
                             {"remaining_nm", entry.remaining_nm}});
     json all = {{"title", c.title},
                 {"time_s", metrics.time_s},
+                {"final", metrics.is_final},
                 {"errors", metrics.has_grid_errors()
                                ? "sampling_error: 95 %, from 8 batches; grid_error: a bound, from "
                                  "the same case on coarser grids; the uncertainty of the "
@@ -229,6 +280,7 @@ json metrics_json(const Case& c, const Metrics& metrics) {
                 {"clearing", clearing},
                 {"targets", targets},
                 {"open_parameters", open_parameters_json(c)}};
+    if (!metrics.after.empty()) all["after_steps"] = after_json(metrics.after);
     if (!metrics.comparison.contours.empty() || !metrics.comparison.cds.empty())
         all["comparison"] = comparison_json(metrics.comparison);
     return all;

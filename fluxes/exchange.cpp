@@ -4,7 +4,6 @@
 #include "fluxes/aim.hpp"
 #include "fluxes/krylov.hpp"
 #include "fluxes/launch.hpp"
-#include "fluxes/open_sky.hpp"
 #include "fluxes/sampling.hpp"
 #include "geometry/check.hpp"
 
@@ -34,7 +33,6 @@ struct Exchange::Tracing {
     const geometry::Surface& surface;
     const geometry::RayCaster& caster;
     const Options& options;
-    std::optional<OpenSky> sky;
     std::optional<OpeningAims> aims;
 
     ScrambledPoints points(int element, int batch) const {
@@ -58,44 +56,26 @@ struct Exchange::Tracing {
 };
 
 /// In-plane directions suffice: diffuse emission has the in-plane density cos(alpha) / 2, so
-/// sin(alpha) is uniform. The directions that see the sky from every point of the element are left
-/// out, for along a segment both horizons only turn one way: all rays are left for the rest.
+/// sin(alpha) is uniform. What is not hit is open.
 void Exchange::Tracing::extruded(int element) {
     const Vec3 a = surface.vertices[surface.corners[element][0]];
     const Vec3 b = surface.vertices[surface.corners[element][1]];
     const double psi = std::atan2(surface.normal[element].x, surface.normal[element].z);
-    const bool covered = sky->one_interval(element);
-    const double normal = covered ? sky->normal_angle(element) : psi; // unwrapped
-    double skip_from = 1, skip = 0;
-    if (covered) {
-        const Visible common = sky->common(element);
-        if (common.low < common.high) {
-            skip_from = std::sin(common.low - normal);
-            skip = std::max(0.0, std::sin(common.high - normal) - skip_from);
-        }
-    }
+    double sum = 0;
     for (int batch = 0; batch < batches; ++batch) {
         const ScrambledPoints stream = points(element, batch);
-        for (int r = 0; r < exchange.per_batch_ && skip < 2 - 1e-9; ++r) {
+        for (int r = 0; r < exchange.per_batch_; ++r) {
             const auto u = stream.pair(r, 0);
-            double sine = -1 + (2 - skip) * (u[1] + 1e-12);
-            if (sine > skip_from) sine += skip;
+            const double sine = 2 * (u[1] + 1e-12) - 1;
             const double phi = psi + std::asin(std::clamp(sine, -1.0, 1.0));
             keep(caster.trace(a + (b - a) * u[0], {std::sin(phi), 0, std::cos(phi)}, element),
                  element, batch);
         }
         sort(element, batch);
         const double hits = exchange.hits_[std::size_t(element) * batches + batch];
-        exchange.batch_direct_[batch][element] =
-            covered ? 0 : 1 - hits / exchange.per_batch_; // voids, floating pieces: as sampled
+        sum += exchange.batch_direct_[batch][element] = 1 - hits / exchange.per_batch_;
     }
-    exchange.direct_[element] = covered ? std::clamp(sky->cosine_flux(element), 0.0, 1.0) : 0;
-    for (int batch = 0; batch < batches; ++batch) {
-        if (covered)
-            exchange.batch_direct_[batch][element] = exchange.direct_[element];
-        else
-            exchange.direct_[element] += exchange.batch_direct_[batch][element] / batches;
-    }
+    exchange.direct_[element] = sum / batches;
 }
 
 /// Sends the rays of one batch and returns its direct flux by the balance heuristic: every ray that
@@ -156,11 +136,8 @@ Exchange::Exchange(const geometry::Domain& domain, const geometry::Surface& surf
     batch_direct_.assign(batches, std::vector<double>(n, 0));
     target_.assign(n * options.rays_per_element, -1);
     hits_.assign(n * batches, 0);
-    Tracing tracing{*this, domain, surface, caster, options, std::nullopt, std::nullopt};
-    if (domain.extruded())
-        tracing.sky.emplace(domain, surface);
-    else
-        tracing.aims.emplace(domain, caster);
+    Tracing tracing{*this, domain, surface, caster, options, std::nullopt};
+    if (!domain.extruded()) tracing.aims.emplace(domain, caster);
     tbb::parallel_for(tbb::blocked_range<std::size_t>(0, n, 8), [&](const auto& range) {
         for (std::size_t e = range.begin(); e != range.end(); ++e)
             domain.extruded() ? tracing.extruded(int(e)) : tracing.full(int(e));

@@ -11,12 +11,11 @@
 
 namespace rille::fluxes {
 
-/// The exchange operator of neutrals in free-molecular flow with diffuse re-emission: traced once,
-/// solved for many species. Arrivals follow from arrival = d + A (1 - sticking) arrival, fluxes
-/// relative to the open one. Row sum of A plus d is 1 by construction, so zero sticking gives flux
-/// 1 everywhere. d: extruded exact from the visible sky, full and revolved from rays by the cosine
-/// law combined with rays aimed at the opening (multiple importance sampling, unbiased). The rest
-/// of a row is shared equally by the elements that the cosine-law rays of the element hit.
+/// The exchange operator from rays, for what ExactExchange does not treat: `full`, and profiles
+/// with pieces that float in the gas. Row sum of A plus d is 1 by construction, so zero sticking
+/// gives flux 1 everywhere. d: in full and revolved from rays by the cosine law combined with rays
+/// aimed at the opening (multiple importance sampling, unbiased). The rest of a row is shared
+/// equally by the elements that the cosine-law rays of the element hit.
 ///
 /// The batches are independent of each other: each has its own scramble of launch points and
 /// directions. Elements without any path to the open (closed voids) receive nothing.
@@ -40,7 +39,7 @@ public:
     void apply(int batch, const double* emitted, double* arrival) const override;
     bool sampled() const override { return true; }
     const std::vector<double>& direct(int batch = -1) const override {
-        return batch < 0 || batch_direct_.empty() ? direct_ : batch_direct_[batch];
+        return batch < 0 ? direct_ : batch_direct_[batch];
     }
 
 private:
@@ -50,7 +49,7 @@ private:
 
     int per_batch_ = 0;
     std::vector<double> direct_;
-    std::vector<std::vector<double>> batch_direct_; ///< empty where every batch has the same d
+    std::vector<std::vector<double>> batch_direct_;
     std::vector<std::int32_t> target_; ///< [element][batch][ray]: elements hit, packed to the front
     std::vector<std::int16_t> hits_;   ///< [element][batch]: how many of them
     std::vector<std::uint8_t> open_;   ///< whether any path leads to the open

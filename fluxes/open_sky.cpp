@@ -40,6 +40,9 @@ OpenSky::OpenSky(const geometry::Domain& domain, const geometry::Surface& surfac
     mirror_ = domain.sides == geometry::Sides::mirror;
     x_min_ = domain.x_min();
     length_ = surface.area;
+    cosine_.angle = {-0.5 * pi, 0.5 * pi}; // uniform in the sine
+    cosine_.share = {0, 1};
+    cosine_.moment = {0, 0};
     UnrolledChain chain = unroll(domain, surface);
     point_ = std::move(chain.point);
     position_ = std::move(chain.position);
@@ -182,32 +185,6 @@ std::vector<Visible> OpenSky::visible(int element, double part) const {
     }
     if (!(seen.low < seen.high)) return {};
     return {seen};
-}
-
-/// From the left horizon at one point to the right horizon at another, over the element's own side.
-Visible OpenSky::seen_over(int element, double part_low, double part_high) const {
-    const std::vector<Visible> low = visible(element, part_low);
-    const std::vector<Visible> high = part_high == part_low ? low : visible(element, part_high);
-    if (low.empty() || high.empty()) return {};
-    const double psi = normal_[position_[element]];
-    return {std::max(low.front().low, psi - 0.5 * pi), std::min(high.front().high, psi + 0.5 * pi)};
-}
-
-Visible OpenSky::common(int element) const {
-    return seen_over(element, 0, 1);
-}
-
-double OpenSky::cosine_flux(int element) const {
-    constexpr std::array<double, 3> node{0.11270166537925831, 0.5, 0.88729833462074169};
-    constexpr std::array<double, 3> weight{5.0 / 18, 8.0 / 18, 5.0 / 18};
-    const double psi = normal_[position_[element]];
-    double sum = 0;
-    for (int i = 0; i < 3; ++i) {
-        const Visible sky = seen_over(element, node[i], node[i]);
-        if (sky.low < sky.high)
-            sum += weight[i] * 0.5 * (std::sin(sky.high - psi) - std::sin(sky.low - psi));
-    }
-    return sum;
 }
 
 /// Chains other than 0: clockwise around solid = a piece of solid; it floats in the gas if it lies

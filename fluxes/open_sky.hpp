@@ -41,18 +41,8 @@ public:
     /// hides is left out: it depends on the normal, which the caller may turn.
     std::vector<Visible> visible(int element, double part) const;
 
-    /// Whether element e is open to the source and only the open surface itself hides sky from it:
-    /// then cosine_flux and common are exact.
-    bool one_interval(int element) const { return floating_.empty() && position_[element] >= 0; }
-    /// Angle of the element's normal [rad], unwrapped along the open surface like all horizons.
-    double normal_angle(int element) const { return normal_[position_[element]]; }
-    /// Mean over the element of the cosine-law flux from the sky relative to the open flux, for
-    /// one_interval(e): (sin(high - psi) - sin(low - psi)) / 2, psi the element's normal, at three
-    /// Gauss points (smooth along a segment but for kinks where the vertex on the horizon changes).
-    double cosine_flux(int element) const;
-    /// Sky that every point of the element sees, for one_interval(e): towards the end of a segment
-    /// both horizons turn left, so its start decides the left and its end the right one.
-    Visible common(int element) const;
+    /// The same for the cosine law.
+    double cosine_flux(int element) const { return flux(cosine_, element); }
 
     bool floating_pieces() const { return !floating_.empty(); }
 
@@ -72,8 +62,6 @@ private:
     struct Segment {
         Point a, b;
     };
-    Visible seen_over(int element, double part_low, double part_high) const;
-
     void unwrap_normals();
     void find_floating(const geometry::Domain&, const geometry::Surface&);
     static Strings pull(const std::vector<Point>&, const std::vector<double>& start_angle);
@@ -84,6 +72,7 @@ private:
     double flux_by_points(const InPlane&, int element) const;
     std::vector<Visible> visible_by_segments(int element, double part) const;
 
+    InPlane cosine_;
     std::vector<Point> point_;   ///< unrolled over one period (mirror: two) from the highest
     std::vector<double> normal_; ///< per unrolled segment, unwrapped [rad]
     std::vector<int> position_;  ///< element -> unrolled segment, or -1

@@ -3,6 +3,7 @@
 
 #include "fluxes/coupling.hpp"
 #include "fluxes/direct_ions.hpp"
+#include "fluxes/exact_exchange.hpp"
 #include "fluxes/ion_tables.hpp"
 #include "fluxes/reflected_ions.hpp"
 #include "geometry/check.hpp"
@@ -157,6 +158,23 @@ IonArrivals gather_ions(const Setting& s, const std::vector<IonReflection>& refl
     return ions;
 }
 
+/// Exact where the symmetry allows it, else from rays. Rays do not mind a surface that touches
+/// itself, either.
+std::unique_ptr<ExchangeOperator> exchange_of(const Setting& s) {
+    std::vector<int> material(s.surface.size());
+    for (std::size_t e = 0; e < material.size(); ++e)
+        material[e] = s.outermost(static_cast<int>(e));
+    if (ExactExchange::serves(s.domain, s.surface)) {
+        try {
+            return std::make_unique<ExactExchange>(s.domain, s.surface, s.caster, material);
+        } catch (const NumericsError&) {
+        }
+    }
+    const Exchange::Options options{s.sampling.rays_per_element, s.sampling.seed,
+                                    s.sampling.refresh};
+    return std::make_unique<Exchange>(s.domain, s.surface, s.caster, options);
+}
+
 /// Neutrals solved together with the sticking that the kinetics of the outermost material gives.
 CoupledArrivals gather_neutrals(const Setting& s, const IonArrivals& ions,
                                 const SurfaceStep* previous) {
@@ -166,13 +184,12 @@ CoupledArrivals gather_neutrals(const Setting& s, const IonArrivals& ions,
     std::vector<double> open;
     for (const NeutralSource& source : s.sources.neutrals)
         open.push_back(source.flux);
-    const Exchange exchange(s.domain, s.surface, s.caster,
-                            {s.sampling.rays_per_element, s.sampling.seed, s.sampling.refresh});
+    const std::unique_ptr<ExchangeOperator> exchange = exchange_of(s);
     const StickingOf sticking = [&](int e, int batch, const double* neutrals) {
         return s.respond_at(s.outermost(e), ions.at(e, batch), neutrals).sticking;
     };
     static const std::vector<std::vector<double>> nothing;
-    return solve_coupled(exchange, open, sticking, previous ? previous->neutral : nothing);
+    return solve_coupled(*exchange, open, sticking, previous ? previous->neutral : nothing);
 }
 
 std::array<double, max_species> at_element(const std::vector<std::vector<double>>& flux, int e) {

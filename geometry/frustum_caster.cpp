@@ -15,6 +15,10 @@ constexpr int leaf_size = 4;
 constexpr int most_reflections = 100000;
 constexpr double infinity = std::numeric_limits<double>::infinity();
 
+double length(double x, double y) {
+    return std::sqrt(x * x + y * y);
+}
+
 } // namespace
 
 /// r^2 = a t^2 + 2 b t + c, z = oz + dz t. A level ray is given the least of slopes: every circle
@@ -145,7 +149,7 @@ double FrustumCaster::least_way(int from, int element) const {
 /// The element that a ray from an inner edge, or from the tip of a cone, runs into at once; -1:
 /// none.
 int FrustumCaster::hit_at_start(const Vec3& o, const Vec3& d, int from) const {
-    const double r = std::hypot(o.x, o.y);
+    const double r = length(o.x, o.y);
     for (int end = 0; end < 2; ++end) {
         const int other = concave_[from][end];
         if (other < 0) continue;
@@ -153,7 +157,7 @@ int FrustumCaster::hit_at_start(const Vec3& o, const Vec3& d, int from) const {
         const double off =
             std::fabs(r - (end ? own.rb : own.ra)) + std::fabs(o.z - (end ? own.zb : own.za));
         if (off > slack_) continue;
-        const double outwards = other == from ? std::hypot(d.x, d.y)
+        const double outwards = other == from ? length(d.x, d.y)
                                 : r > 0       ? (o.x * d.x + o.y * d.y) / r
                                               : 0;
         if (outwards * (f.za - f.zb) + d.z * (f.rb - f.ra) < 0) return other;
@@ -196,7 +200,8 @@ namespace {
 
 /// Turns the end of a ray into the half-plane y = 0, x >= 0.
 void turn_into_plane(Hit& hit) {
-    const double r = std::hypot(hit.point.x, hit.point.y);
+    if (hit.point.y == 0 && hit.point.x >= 0) return;
+    const double r = length(hit.point.x, hit.point.y);
     if (r > 0) {
         const double c = hit.point.x / r, s = hit.point.y / r;
         const Vec3 d = hit.direction;
@@ -238,7 +243,7 @@ Hit FrustumCaster::trace(const Vec3& origin, const Vec3& direction, int from) co
             turn_into_plane(hit);
             return hit;
         }
-        const double r = std::hypot(o.x, o.y);
+        const double r = length(o.x, o.y);
         const double outwards = (o.x * d.x + o.y * d.y) / r;
         if (!(outwards > 0)) break;
         o.x *= radius_ / r;

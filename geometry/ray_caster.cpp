@@ -8,6 +8,7 @@
 #include <tbb/cache_aligned_allocator.h>
 #include <tbb/enumerable_thread_specific.h>
 
+#include <algorithm>
 #include <optional>
 
 namespace rille::geometry {
@@ -17,8 +18,8 @@ namespace {
 /// Counts of one thread, alone on its cache line; only that thread writes them.
 struct alignas(64) Counts {
     std::atomic<std::uint64_t> traced{0}, lost{0};
-    static void add_one(std::atomic<std::uint64_t>& count) {
-        count.store(count.load(std::memory_order_relaxed) + 1, std::memory_order_relaxed);
+    static void add(std::uint64_t some, std::atomic<std::uint64_t>& count) {
+        count.store(count.load(std::memory_order_relaxed) + some, std::memory_order_relaxed);
     }
 };
 using CountsOfThreads =
@@ -34,6 +35,11 @@ struct RayCaster::Impl {
     std::unique_ptr<QuadCaster> quads;     ///< full
     mutable CountsOfThreads counts;
 
+    Hit hit(const Vec3& origin, const Vec3& direction, int from) const {
+        return segments ? segments->trace(origin, direction, from)
+               : frusta ? frusta->trace(origin, direction, from)
+                        : quads->trace(origin, direction, from);
+    }
     std::uint64_t sum(std::atomic<std::uint64_t> Counts::*count) const {
         std::uint64_t total = 0;
         for (const Counts& c : counts)
@@ -56,13 +62,25 @@ RayCaster::RayCaster(const Domain& domain, const Surface& surface, double z_open
 RayCaster::~RayCaster() = default;
 
 Hit RayCaster::trace(const Vec3& origin, const Vec3& direction, int from_element) const {
-    const Hit hit = impl_->segments ? impl_->segments->trace(origin, direction, from_element)
-                    : impl_->frusta ? impl_->frusta->trace(origin, direction, from_element)
-                                    : impl_->quads->trace(origin, direction, from_element);
+    const Hit hit = impl_->hit(origin, direction, from_element);
     Counts& counts = impl_->counts.local();
-    Counts::add_one(counts.traced);
-    if (hit.kind == Hit::Kind::lost) Counts::add_one(counts.lost);
+    Counts::add(1, counts.traced);
+    if (hit.kind == Hit::Kind::lost) Counts::add(1, counts.lost);
     return hit;
+}
+
+void RayCaster::trace(const RayStart* rays, std::size_t count, Hit* hits) const {
+    if (impl_->segments)
+        impl_->segments->trace(rays, count, hits);
+    else
+        for (std::size_t n = 0; n < count; ++n)
+            hits[n] = impl_->hit(rays[n].origin, rays[n].direction, rays[n].from_element);
+    Counts& counts = impl_->counts.local();
+    Counts::add(count, counts.traced);
+    Counts::add(
+        static_cast<std::uint64_t>(std::count_if(
+            hits, hits + count, [](const Hit& hit) { return hit.kind == Hit::Kind::lost; })),
+        counts.lost);
 }
 
 double RayCaster::z_open() const {

@@ -2,13 +2,11 @@
 #include "geometry/segment_caster.hpp"
 
 #include "geometry/check.hpp"
+#include "geometry/vertex_sides.hpp"
 
 #include <algorithm>
 #include <cmath>
 #include <limits>
-#ifdef __SSE2__
-#include <emmintrin.h>
-#endif
 
 namespace rille::geometry {
 
@@ -18,45 +16,15 @@ constexpr double far_away = 1e300;
 // A ray below the highest point of the surface meets the period's highest point, or what lies in
 // front of it, within two images; more means that something is broken.
 constexpr int most_folds = 16;
-// Of the in-plane part of a unit direction.
-constexpr double least_square = 1e-24;
 
 double safe_inverse(double v) {
     if (std::fabs(v) > 1.0 / far_away) return 1.0 / v;
     return std::signbit(v) ? -far_away : far_away;
 }
 
-/// x and z of a point or direction.
-using Pair [[gnu::vector_size(16)]] = double;
-
 inline double dot(const Pair& a, const Pair& b) {
     const Pair product = a * b;
     return product[0] + product[1];
-}
-
-/// Bit k: vertex k lies on the right of the ray through o along d; side: its cross product with d.
-/// `count` is even, x and z aligned to 16 bytes. Both ways give the same bits.
-template <int count>
-inline unsigned vertices_on_right(const double* x, const double* z, const Pair& o, const Pair& d,
-                                  double positive, double* side) {
-    unsigned right = 0;
-#ifdef __SSE2__
-    const __m128d ox = _mm_set1_pd(o[0]), oz = _mm_set1_pd(o[1]);
-    const __m128d dx = _mm_set1_pd(d[0]), dz = _mm_set1_pd(d[1]), limit = _mm_set1_pd(positive);
-    for (int k = 0; k < count; k += 2) {
-        const __m128d along = _mm_mul_pd(dx, _mm_sub_pd(_mm_load_pd(z + k), oz));
-        const __m128d across = _mm_mul_pd(dz, _mm_sub_pd(_mm_load_pd(x + k), ox));
-        const __m128d s = _mm_sub_pd(along, across);
-        _mm_store_pd(side + k, s);
-        right |= static_cast<unsigned>(_mm_movemask_pd(_mm_cmplt_pd(s, limit))) << k;
-    }
-#else
-    for (int k = 0; k < count; ++k) {
-        side[k] = d[0] * (z[k] - o[1]) - d[1] * (x[k] - o[0]);
-        right |= static_cast<unsigned>(side[k] < positive) << k;
-    }
-#endif
-    return right;
 }
 
 } // namespace
@@ -144,10 +112,6 @@ bool SegmentCaster::enter(Ray& ray) const {
     ray.ix = std::clamp(static_cast<int>((x - x_min_) * per_cell_x_), 0, nx_ - 1);
     ray.iz = std::clamp(static_cast<int>((z - z_min_) * per_cell_z_), 0, nz_ - 1);
     return true;
-}
-
-inline int SegmentCaster::content_at(const Cell& cell) const {
-    return content_[(cell.z + 1) * next_z_ + (cell.x + 1) * next_x_];
 }
 
 /// Moves the ray from a cell to the next one.
@@ -247,15 +211,6 @@ inline void SegmentCaster::finish_hit(const Ray& ray, const Crossing& at, Hit& h
     if (ray.flipped) hit.direction.x = -hit.direction.x;
 }
 
-/// Whether a ray reaches the room in front of the element that it leaves. The margin is for rays
-/// along a straight wall, which round-off takes to either side of it.
-inline bool SegmentCaster::reaches_room(const Vec3& direction, const Start& start) const {
-    constexpr double margin = 1e-6;
-    const double up = start.along_x * direction.z - start.along_z * direction.x;
-    const double along = start.along_x * direction.x + start.along_z * direction.z;
-    return up > (start.skyline[along > 0] + margin) * std::fabs(along);
-}
-
 void SegmentCaster::finish_open(Ray& ray, Hit& hit) const {
     hit.kind = Hit::Kind::open;
     hit.distance = std::max(0.0, (z_open_ - ray.oz) / ray.dz);
@@ -306,13 +261,14 @@ SegmentCaster::cell_beyond(const Room& room, const Vec3& origin, const Vec3& dir
                      Pair{cell.x + 0.5, cell.z + 0.5};
     if (!(std::max(std::fabs(off[0]), std::fabs(off[1])) <= 0.5 + hit_reach)) return false;
     const double way = dot(point - o, d);
-    if (!(way > 0 && way * way > slack_ * slack_ * square)) return false;
+    const int element = run.element + k;
+    if (!(way > 0 && way * way > slack_ * slack_ * square) || element == from) return false;
     hit.kind = Hit::Kind::surface;
-    hit.element = run.element + k;
+    hit.element = element;
     hit.distance = way / square;
     hit.point = Vec3(std::min(std::max(point[0], x_min_), x_min_ + width_),
                      origin.y + hit.distance * direction.y, point[1]);
-    return hit.element != from;
+    return true;
 }
 
 Hit SegmentCaster::trace(const Vec3& origin, const Vec3& direction, int from_element) const {

@@ -6,6 +6,8 @@
 #include "geometry/surface.hpp"
 
 #include <array>
+#include <cmath>
+#include <cstddef>
 #include <cstdint>
 #include <limits>
 #include <vector>
@@ -31,6 +33,8 @@ public:
 
     /// As RayCaster::trace.
     Hit trace(const Vec3& origin, const Vec3& direction, int from_element) const;
+    /// The same hits, to the bit, for many rays at once: what they compute runs side by side.
+    void trace(const RayStart* rays, std::size_t count, Hit* hits) const;
 
 private:
     /// Up to `run_length` consecutive elements of a chain: their vertices. Unused places repeat the
@@ -58,6 +62,7 @@ private:
     struct Cell {
         int x, z;
     };
+    static constexpr double least_square = 1e-24; ///< of the part of a unit direction in the plane
     static constexpr Cell nowhere{std::numeric_limits<int>::min(), 0};
     /// A ray that leaves an element more steeply than its skyline reaches `room` without meeting
     /// anything. Skyline: tangent of the elevation over the segment, for rays towards the start of
@@ -69,6 +74,7 @@ private:
     };
     struct Ray; // the ray in the frame of the image it is in
     struct Crossing;
+    struct Block; // rays that are traced together
 
     void choose_grid(const Surface&);
     int columns_that_fit(double wanted) const;
@@ -93,11 +99,16 @@ private:
     int row(double z) const;
 
     Cell cell_beyond(const Room&, const Vec3& origin, const Vec3& direction) const;
+    void find_rooms_ahead(Block&) const;
+    void find_cells_ahead(Block&) const;
+    void find_segments_ahead(Block&) const;
     bool trace_across(const Vec3& origin, const Vec3& direction, int from, Hit&, Cell&) const;
     void trace_by_cells(const Vec3& origin, const Vec3& direction, int from, Cell, Hit&) const;
     bool enter(Ray&) const;
     void fold_into_period(Ray&, double t) const;
-    int content_at(const Cell&) const;
+    int content_at(const Cell& cell) const {
+        return content_[(cell.z + 1) * next_z_ + (cell.x + 1) * next_x_];
+    }
     void cross_cell(Ray&) const;
     void cross_room(Ray&, const Room&) const;
     bool cross_side(Ray&) const;
@@ -112,7 +123,14 @@ private:
         return (element == joined_[from][0] && !concave_[from][0]) ||
                (element == joined_[from][1] && !concave_[from][1]);
     }
-    bool reaches_room(const Vec3& direction, const Start&) const;
+    /// Whether a ray reaches the room in front of the element that it leaves. The margin is for
+    /// rays along a straight wall, which round-off takes to either side of it.
+    bool reaches_room(const Vec3& direction, const Start& start) const {
+        constexpr double margin = 1e-6;
+        const double up = start.along_x * direction.z - start.along_z * direction.x;
+        const double along = start.along_x * direction.x + start.along_z * direction.z;
+        return up > (start.skyline[along > 0] + margin) * std::fabs(along);
+    }
     bool starts_in_joint(const Vec3& origin, const Vec3& direction, int from, Hit&) const;
 
     Domain domain_;

@@ -5,10 +5,13 @@
 #include "engine/number_text.hpp"
 #include "engine/output_names.hpp"
 #include "engine/picture.hpp"
+#include "engine/problems.hpp"
 #include "engine/report/case_difference.hpp"
 #include "engine/report/run_folder.hpp"
 #include "engine/report/study_figures.hpp"
 #include "engine/report/study_profiles.hpp"
+#include "engine/study/study.hpp"
+#include "engine/study/study_names.hpp"
 #include "engine/svg.hpp"
 
 #include <algorithm>
@@ -42,6 +45,29 @@ std::string member(const json& object, const char* key) {
                : "";
 }
 
+/// Values of the case of a point, which as a rule keeps no case.yaml of its own, from the study
+/// that it lies in. Empty where that is not there, or is not the one that made the point.
+std::map<std::string, std::string> point_values(const fs::path& folder, const json& record) {
+    const fs::path study_file =
+        fs::absolute(folder / "").lexically_normal().parent_path().parent_path().parent_path() /
+        study_names::study;
+    std::error_code ignored;
+    if (!fs::exists(study_file, ignored)) return {};
+    try {
+        const Study study = reload_study(study_file.string());
+        const std::size_t index = record.at("point");
+        if (index >= study.points) return {};
+        std::vector<std::string> texts;
+        for (const StudyValue& value : study_point(study, index).values)
+            texts.push_back(value.text);
+        if (record.at("values") != json(texts)) return {};
+        return case_values(point_case(study, index));
+    } catch (const InputError&) {
+    } catch (const json::exception&) {
+    }
+    return {};
+}
+
 ComparedRun read_run(const std::string& folder) {
     constexpr const char* tried = "cannot compare this run";
     ComparedRun run;
@@ -62,11 +88,12 @@ ComparedRun read_run(const std::string& folder) {
         throw OutputError((path / output_names::metrics).string(), tried, "the file is damaged");
     }
     run.outline = profile_outline(profile, 0.05);
-    for (const char* record : {output_names::record, "point.json"})
-        if (run.status.empty())
-            run.status =
-                member(json::parse(text_if_there(path / record), nullptr, false), "status");
+    const json point = json::parse(text_if_there(path / study_names::point_record), nullptr, false);
+    run.status =
+        member(json::parse(text_if_there(path / output_names::record), nullptr, false), "status");
+    if (run.status.empty()) run.status = member(point, "status");
     run.values = case_values(text_if_there(path / output_names::resolved_case));
+    if (run.values.empty() && point.is_object()) run.values = point_values(path, point);
     return run;
 }
 
@@ -196,7 +223,9 @@ std::string inputs_html(const std::vector<ComparedRun>& runs) {
     std::vector<std::map<std::string, std::string>> cases;
     for (const ComparedRun& run : runs) {
         if (run.values.empty())
-            return "<p>A run keeps no case.yaml, so what they differ in is not known here.</p>\n";
+            return "<p>A run keeps no case.yaml and lies in no study, so what they differ in is "
+                   "not "
+                   "known here.</p>\n";
         cases.push_back(run.values);
     }
     const std::vector<CaseDifference> differences = case_differences(cases);

@@ -176,10 +176,10 @@ struct Quantity {
 void add_levels(const Case& c, const std::string& metric, Quantity& quantity) {
     for (const Target& target : c.targets) {
         if (target.metric != metric && target.metric.rfind(metric + " of ", 0) != 0) continue;
-        if (target.at_least)
-            quantity.levels.emplace_back(*target.at_least, metric_label(metric) + ", at least");
-        if (target.at_most)
-            quantity.levels.emplace_back(*target.at_most, metric_label(metric) + ", at most");
+        const std::string of =
+            metric_label(metric) + (target.after.empty() ? "" : " after " + target.after);
+        if (target.at_least) quantity.levels.emplace_back(*target.at_least, of + ", at least");
+        if (target.at_most) quantity.levels.emplace_back(*target.at_most, of + ", at most");
     }
 }
 

@@ -30,6 +30,9 @@ struct RunFolder {
     bool has_metrics = false;        ///< neither is there where false
     HistoryTable history;
     bool can_be_resumed = false; ///< a saved state is there
+
+    /// The run was stopped or failed before the end of its recipe, or is still going on.
+    bool is_stopped() const;
 };
 
 /// Reads all of it but the frames. Throws OutputError where a file is there but no such file.
@@ -37,6 +40,12 @@ RunFolder read_run_folder(const std::string& path, const Case&);
 
 /// The frames of a run in order of time; empty if there are none.
 std::vector<std::string> frame_files(const std::string& folder);
+/// run.json; null where there is none. Throws OutputError for anything else.
+nlohmann::json run_record(const std::string& folder);
+/// What the frames show of the ends of the steps that targets name; a step whose end none of them
+/// shows is left out.
+std::vector<StepMetrics> measured_after(const Case&, const std::vector<std::string>& frames,
+                                        const nlohmann::json& record);
 /// What metrics_json wrote. Throws nlohmann::json::exception for anything else.
 Metrics metrics_from_json(const nlohmann::json&);
 HistoryTable history_table(const std::string& csv);

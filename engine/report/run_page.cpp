@@ -153,9 +153,10 @@ std::string picture_html(const RunParts& p, const Frames* frames) {
     figure.id = "profile";
     figure.svg = section_sheet(p.c, frames->fronts, frames->last, p.folder.metrics);
     figure.slide = picture_svg(p.c, frames->fronts, frames->last, p.folder.metrics);
-    figure.caption = p.folder.frames.size() > 1
-                         ? "The profile at the end, over the fronts before it."
-                         : "The profile.";
+    figure.caption = p.folder.frames.size() < 2 ? "The profile."
+                     : p.folder.is_stopped()
+                         ? "The profile where the run stopped, over the fronts before it."
+                         : "The profile at the end, over the fronts before it.";
     return p.show(figure);
 }
 
@@ -165,7 +166,8 @@ std::string summary_html(const RunParts& p, const Frames* frames) {
         warnings = fmt::format("<p class=\"warning\"><a href=\"#warnings\">{} warning{}</a></p>\n",
                                count, count == 1 ? "" : "s");
     return "<div class=\"sides first\">\n<div>\n" + picture_html(p, frames) + "</div>\n<div>\n" +
-           outcome_html(p) + warnings + "<div class=\"sides\"><div><h2>What came out</h2>\n" +
+           outcome_html(p) + warnings + "<div class=\"sides\"><div><h2>" +
+           (p.folder.is_stopped() ? "Where it stands" : "What came out") + "</h2>\n" +
            results_html(p) + "</div>\n<div><h2>What was asked</h2>\n" + asked_html(p) +
            "</div></div>\n<h2>Targets</h2>\n" + targets_html(p) + "<h2>What it rests on</h2>\n" +
            standing_html(p) + "<p class=\"caution\">" + escaped(caution) + "</p>\n</div>\n</div>\n";
@@ -177,7 +179,10 @@ RunReport run_report(const Case& c, const RunFolder& folder) {
     RunReport report;
     Page& page = report.page;
     const RunParts parts{c, folder, report.figures};
-    page.kind = "Run";
+    page.kind = !folder.is_stopped() ? "Run"
+                : folder.record.is_object() && folder.record.value("status", "") == "failed"
+                    ? "Run that failed"
+                    : "Run, not at its end";
     page.title = c.title;
     page.styles = {"run.css"};
     page.scripts = {"run.js"};

@@ -98,15 +98,19 @@ std::string step_text(const RecipeStep& step) {
 }
 
 /// How a recipe step ended, as the record has it.
-std::string step_outcome(const RunParts& p, const std::string& name) {
-    if (!p.folder.record.is_object()) return "not known";
-    for (const json& step : p.folder.record.value("steps", json::array()))
-        if (step.value("name", "") == name) {
+std::string step_outcome(const RunParts& p, std::size_t index) {
+    const json& record = p.folder.record;
+    if (!record.is_object()) return "not known";
+    const json steps = record.value("steps", json::array());
+    for (const json& step : steps)
+        if (step.value("name", "") == p.c.steps[index].name) {
             const std::string reason = step.value("ended_by", "");
             return time_text(step.value("duration_s", 0.0)) +
                    (reason == "time" ? "" : ": " + reason);
         }
-    return "not ended";
+    if (index > steps.size()) return "not begun";
+    const double begun = steps.empty() ? 0.0 : steps.back().value("end_s", 0.0);
+    return "stopped " + time_text(record.value("simulated_s", 0.0) - begun) + " into it";
 }
 
 /// Metrics of the first screen, in this order; CDs of every name come first.
@@ -170,13 +174,18 @@ std::string unit_text(const std::string& unit) {
 
 std::string outcome_html(const RunParts& p) {
     const json& record = p.folder.record;
-    const std::string resume =
-        p.folder.can_be_resumed ? " <code>rille resume</code> takes it up from here." : "";
+    const std::string resume = p.folder.can_be_resumed
+                                   ? "<br>To take it up from there: <code>rille resume " +
+                                         escaped(p.folder.path) + "</code>"
+                                   : "";
     if (!record.is_object())
-        return "<p class=\"outcome stopped\"><strong>Not finished.</strong> The run left no "
-               "record: "
-               "it was stopped before its end, or this folder keeps part of it. Shown is what is "
-               "here." +
+        return "<p class=\"outcome stopped\"><strong>Not finished.</strong> " +
+               std::string(p.folder.can_be_resumed
+                               ? "The run left no record: it is still going on, or was killed. "
+                                 "Shown is the last moment that it wrote; it may have come "
+                                 "further."
+                               : "The run left no record: it was stopped before its end, or this "
+                                 "folder keeps part of it. Shown is what is here.") +
                resume + "</p>";
     const std::string status = record.value("status", "");
     const std::string took =
@@ -190,9 +199,8 @@ std::string outcome_html(const RunParts& p) {
                "limit before it reached what it was to reach;" +
                took + "</p>";
     if (status == "interrupted")
-        return "<p class=\"outcome stopped\"><strong>Interrupted.</strong> Shown is the state at "
-               "the "
-               "stop;" +
+        return "<p class=\"outcome stopped\"><strong>Interrupted</strong> before the end of the "
+               "recipe. Everything here is of the moment of the stop;" +
                took + resume + "</p>";
     return "<p class=\"outcome failed\"><strong>Failed.</strong> " +
            escaped(record.value("failure", "no reason is recorded")) +
@@ -212,8 +220,8 @@ std::string asked_html(const RunParts& p) {
     fact("Plasma", plasmas);
     fact("Chemistry",
          p.c.chemistry + fmt::format(", wafer at {:.4g} °C", p.c.wafer_temperature_k - 273.15));
-    for (const RecipeStep& step : p.c.steps)
-        fact("Step " + step.name, step_text(step) + " → " + step_outcome(p, step.name));
+    for (std::size_t i = 0; i < p.c.steps.size(); ++i)
+        fact("Step " + p.c.steps[i].name, step_text(p.c.steps[i]) + " → " + step_outcome(p, i));
     return html + "</dl>\n";
 }
 
@@ -261,20 +269,25 @@ std::string targets_html(const RunParts& p) {
     table.columns = {{"target", false, "", true}, {"value", true}, {"by the numbers"}, {"verdict"}};
     std::set<std::string> reasons;
     for (const TargetVerdict& v : metrics.targets) {
-        const Metric* metric = metrics.find(v.metric, v.feature);
+        const Metric then{v.metric, v.feature, v.value, v.unit, v.sampling_error, "", ""};
+        const Metric* shown = v.after.empty() ? metrics.find(v.metric, v.feature) : &then;
         const std::string word = verdict_name(v.verdict);
         table.rows.push_back(
             {{several && !v.feature.empty() ? v.feature + ": " + v.target : v.target},
-             value_cell(metric),
+             value_cell(shown),
              {verdict_name(v.by_numbers)},
              {word, "", "<span class=\"verdict " + word + "\">" + word + "</span>"}});
+        if (!metrics.is_final && v.after.empty()) continue; // said once, below
         const std::size_t but = v.reason.find(", but ");
         if (v.verdict != v.by_numbers && but != std::string::npos)
             reasons.insert("Undecided: " + v.reason.substr(but + 6));
-        else if (!metric || !metric->value)
+        else if (!v.value)
             reasons.insert(v.target + ": " + v.reason);
     }
     std::string html = table_html(table);
+    if (!metrics.is_final)
+        html += "<p class=\"soft small\">The run has not come to its end: what is due then stays "
+                "undecided, whatever the numbers say now.</p>\n";
     for (const std::string& reason : reasons)
         html += "<p class=\"soft small\">" + escaped(reason) + ".</p>\n";
     return html;

@@ -143,7 +143,8 @@ std::string section_sheet(const Case& c, const std::vector<PictureFront>& fronts
     for (const PictureFront& front : fronts)
         all.push_back(&front.section);
     const View v = frame_of(c, all);
-    Svg svg = sheet_of(c, v, subtitle_of(c, "after " + time_text(last.time_s)));
+    Svg svg = sheet_of(
+        c, v, subtitle_of(c, "after " + time_text(last.time_s) + unfinished_words(metrics)));
     const PictureContext p{c, fronts, last, profile, metrics, material_looks(c.materials)};
     draw_section(svg, v, p);
     draw_depth_axis(svg, v);

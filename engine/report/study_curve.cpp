@@ -13,20 +13,6 @@ namespace {
 
 constexpr std::size_t most_slices = 12, most_lines = 16, most_markers = 1500;
 
-ChartAxis chart_axis(const StudyAxis& axis) {
-    ChartAxis out;
-    out.title = axis.title;
-    out.unit = axis.unit;
-    out.logarithmic = axis.is_logarithmic && axis.has_numbers;
-    if (!axis.has_numbers) out.words = axis.labels;
-    return out;
-}
-
-double place_on(const StudyAxis& axis, std::size_t row) {
-    const std::size_t level = axis.level[row];
-    return axis.has_numbers ? axis.numbers[level] : static_cast<double>(level);
-}
-
 class CurveMaker {
 public:
     CurveMaker(const StudyView& view, const MeasuredRows& measured, bool is_joined)
@@ -38,7 +24,7 @@ public:
         chart.text = view_.figure_text(id, slice.name.empty() ? title : title + ", " + slice.name);
         if (view_.line)
             chart.text.subtitle += " · one line for each " + view_.axes[*view_.line].title;
-        chart.x = chart_axis(x_);
+        chart.x = x_.chart_axis();
         chart.y.title = view_.y_title();
         chart.y.unit = view_.y_unit();
         std::map<std::size_t, std::vector<std::size_t>> lines;
@@ -67,7 +53,7 @@ private:
             const std::size_t row = rows[i];
             const auto value = view_.table.number(row, *view_.y);
             if (!value) continue;
-            const double x = place_on(x_, row);
+            const double x = x_.place(row);
             means[x].first += *value;
             ++means[x].second;
             if (i % stride_ != 0) continue;
@@ -110,7 +96,7 @@ private:
             const auto here =
                 std::find_first_of(m.rows.begin(), m.rows.end(), rows.begin(), rows.end());
             if (here == m.rows.end()) continue;
-            line.points.push_back({place_on(x_, *here), m.value, m.sigma.value_or(0), false, "",
+            line.points.push_back({x_.place(*here), m.value, m.sigma.value_or(0), false, "",
                                    "measured: " + with_error(m.value, m.sigma.value_or(0)) +
                                        unit_suffix(view_.y_unit())});
         }
@@ -131,7 +117,8 @@ private:
         std::size_t count = 0;
         for (const std::size_t row : slice.rows)
             if (!view_.table.number(row, *view_.y) && ++count <= 8)
-                without += (without.empty() ? "" : ", ") + view_.point(row);
+                without += (without.empty() ? "" : ", ") + view_.point(row) +
+                           (view_.is_open(row) ? " (" + view_.status(row) + ")" : "");
         if (count > 0)
             notes.push_back(fmt::format("No value from {} point{}: {}{}.", count,
                                         count == 1 ? "" : "s", without, count > 8 ? " ..." : ""));

@@ -21,6 +21,10 @@ struct SliceFigure {
 /// The curve that is asked for: y against x, one line for each value of `line`, a slice for each
 /// combination of further axes. Where the plan is no grid the points stand alone, unjoined.
 std::vector<std::pair<std::string, LineChart>> answer_charts(const StudyView&, const MeasuredRows&);
+/// Columns of the metrics that the curve and the targets are about, each once.
+std::vector<std::size_t> asked_metrics(const StudyView&, std::size_t most);
+/// A metric against each axis that is varied freely, every point on its own.
+std::vector<LineChart> scatter_charts(const StudyView&, std::size_t metric_column);
 /// The metric that is asked for, or `metric_column`, over two axes of the plan.
 std::vector<std::pair<std::string, HeatMap>> metric_maps(const StudyView&,
                                                          std::size_t metric_column);
@@ -48,5 +52,17 @@ Figure figure_of(const Chart& chart, const std::string& caption) {
 /// Figures of which one is shown at a time where scripts run: a choice above them.
 std::string slices_html(const std::string& id, const std::string& label,
                         const std::vector<SliceFigure>&);
+/// The same for anything, as pairs of a name and its HTML, one element each.
+std::string choice_html(const std::string& id, const std::string& label,
+                        const std::vector<std::pair<std::string, std::string>>& parts);
+/// A figure as small as on a narrow screen, for several side by side.
+template <class Chart>
+Figure small_figure_of(const Chart& chart, const std::string& caption) {
+    Figure figure = figure_of(chart, caption);
+    figure.svg = std::move(figure.narrow);
+    figure.narrow.clear();
+    figure.least_width = 280;
+    return figure;
+}
 
 } // namespace rille::engine

@@ -146,6 +146,19 @@ std::vector<std::size_t> map_axes(const StudyView& view) {
     return axes;
 }
 
+std::vector<std::size_t> asked_metrics(const StudyView& view, std::size_t most) {
+    std::vector<std::size_t> metrics;
+    if (view.y) metrics.push_back(*view.y);
+    for (const std::size_t column : view.table.all(Role::target)) {
+        const auto metric =
+            view.table.metric(view.table.columns[column].label, view.table.columns[column].feature);
+        if (metric && std::find(metrics.begin(), metrics.end(), *metric) == metrics.end())
+            metrics.push_back(*metric);
+    }
+    metrics.resize(std::min(metrics.size(), most));
+    return metrics;
+}
+
 std::string window_verdict(const StudyView& view, std::size_t row) {
     std::string verdict;
     for (const std::size_t column : view.table.all(Role::target)) {
@@ -186,21 +199,29 @@ window_maps(const StudyView& view, const std::optional<std::size_t>& target_colu
     return maps;
 }
 
-std::string slices_html(const std::string& id, const std::string& label,
-                        const std::vector<SliceFigure>& figures) {
+std::string choice_html(const std::string& id, const std::string& label,
+                        const std::vector<std::pair<std::string, std::string>>& parts) {
     std::string html;
-    if (figures.size() > 1) {
+    if (parts.size() > 1) {
         html += "<p class=\"choice screen-only\"><label>" + escaped(label) + " <select id=\"" + id +
                 "\" data-choose=\"" + id + "-figures\">";
-        for (std::size_t i = 0; i < figures.size(); ++i)
-            html += "<option value=\"" + std::to_string(i) + "\">" + escaped(figures[i].name) +
+        for (std::size_t i = 0; i < parts.size(); ++i)
+            html += "<option value=\"" + std::to_string(i) + "\">" + escaped(parts[i].first) +
                     "</option>";
         html += "</select></label></p>\n";
     }
     html += "<div id=\"" + id + "-figures\">\n";
-    for (const SliceFigure& slice : figures)
-        html += figure_html(slice.figure);
+    for (const auto& part : parts)
+        html += part.second;
     return html + "</div>\n";
+}
+
+std::string slices_html(const std::string& id, const std::string& label,
+                        const std::vector<SliceFigure>& figures) {
+    std::vector<std::pair<std::string, std::string>> parts;
+    for (const SliceFigure& slice : figures)
+        parts.emplace_back(slice.name, figure_html(slice.figure));
+    return choice_html(id, label, parts);
 }
 
 } // namespace rille::engine

@@ -59,16 +59,7 @@ PageSection profiles_section(const StudyParts& p) {
 
 PageSection maps_section(const StudyParts& p) {
     PageSection section{"maps", "Over two axes", "", false};
-    std::vector<std::size_t> metrics;
-    if (p.view.y) metrics.push_back(*p.view.y);
-    for (const std::size_t column : p.view.table.all(Role::target)) {
-        const auto metric = p.view.table.metric(p.view.table.columns[column].label,
-                                                p.view.table.columns[column].feature);
-        if (metric && std::find(metrics.begin(), metrics.end(), *metric) == metrics.end())
-            metrics.push_back(*metric);
-    }
-    metrics.resize(std::min(metrics.size(), most_map_metrics));
-    for (const std::size_t metric : metrics) {
+    for (const std::size_t metric : asked_metrics(p.view, most_map_metrics)) {
         std::vector<SliceFigure> figures;
         for (const auto& [name, map] : metric_maps(p.view, metric))
             figures.push_back(p.show(name, map, "A cell shows its point's profile."));
@@ -108,7 +99,8 @@ StudyReport study_report(const std::string& folder) {
     const StudyParts parts{view, shelf, report.figures};
     page.summary = study_summary_html(parts);
     std::vector<PageSection> sections;
-    for (const auto make : {profiles_section, maps_section, window_section, effects_section})
+    for (const auto make :
+         {scatter_section, profiles_section, maps_section, window_section, effects_section})
         sections.push_back(make(parts));
     sections.push_back(points_section(parts, page));
     sections.push_back(failures_section(parts));

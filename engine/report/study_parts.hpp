@@ -20,11 +20,17 @@ struct StudyParts {
         figures.push_back(figure_of(chart, caption));
         return {name, figures.back()};
     }
+    template <class Chart>
+    const Figure& show_small(const Chart& chart, const std::string& caption) const {
+        figures.push_back(small_figure_of(chart, caption));
+        return figures.back();
+    }
 };
 
 /// The first screen: the curve, what it says, how the points ended.
 std::string study_summary_html(const StudyParts&);
 /// Sections; empty `html` where there is nothing to show.
+PageSection scatter_section(const StudyParts&);
 PageSection profiles_section(const StudyParts&);
 PageSection maps_section(const StudyParts&);
 PageSection window_section(const StudyParts&);

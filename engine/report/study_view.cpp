@@ -145,6 +145,15 @@ std::string StudyAxis::value_text(std::size_t level_index) const {
     return labels.at(level_index) + (unit.empty() ? "" : " " + unit);
 }
 
+ChartAxis StudyAxis::chart_axis() const {
+    ChartAxis out;
+    out.title = title;
+    out.unit = unit;
+    out.logarithmic = is_logarithmic && has_numbers;
+    if (!has_numbers) out.words = labels;
+    return out;
+}
+
 std::string StudyView::status(std::size_t row) const {
     const auto column = table.find(Role::status);
     return column ? std::string(table.text(row, *column)) : "";

@@ -27,6 +27,11 @@ struct StudyAxis {
     std::string value_text(std::size_t level_index) const;
     /// Varied freely: neither linked to another nor a repeat, and more than one value.
     bool is_free() const { return !is_linked && !is_seed && labels.size() > 1; }
+    /// As the axis of a chart, and where a row stands on it.
+    ChartAxis chart_axis() const;
+    double place(std::size_t row) const {
+        return has_numbers ? numbers[level[row]] : static_cast<double>(level[row]);
+    }
 };
 
 /// Rows of the table with equal values in everything but two axes (and repeats).

@@ -248,7 +248,7 @@ RunParts run_parts(const std::vector<StudyKeep::Part>& keep) {
 
 StudyAtWork open_study(const std::string& folder) {
     const fs::path path = fs::absolute(folder);
-    return {path.string(), load_study((path / study_names::study).string()),
+    return {path.string(), reload_study((path / study_names::study).string()),
             read_file((path / study_names::base_case).string())};
 }
 

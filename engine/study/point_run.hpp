@@ -16,7 +16,7 @@ struct StudyAtWork {
     Study study;
     std::string base_text; ///< base/case.yaml
 };
-/// Reads a study from its folder. Throws InputError, OutputError.
+/// Reads a study from its folder, where it was checked before. Throws InputError, OutputError.
 StudyAtWork open_study(const std::string& folder);
 
 /// How an attempt on a point ended.

@@ -156,14 +156,27 @@ private:
             for (const json& metric : in.at("metrics"))
                 any_grid_error |= add_metric(metric, metrics);
             for (const json& target : in.at("targets"))
-                put(targets,
-                    targets_.place(
-                        target_column(target.at("metric"), target.at("feature"), several_)),
-                    target.at("verdict"));
+                add_target(target, metrics, targets);
         } catch (const json::exception& error) {
             throw OutputError(path, "cannot read the metrics of a point", error.what());
         }
         return any_grid_error;
+    }
+
+    /// The verdict; of a value at the end of a step the value too, which no metric column holds.
+    void add_target(const json& target, std::vector<std::string>& metrics,
+                    std::vector<std::string>& targets) {
+        std::string name = target.at("metric");
+        const std::string after = target.value("after", "");
+        if (!after.empty()) {
+            json value = target;
+            value["name"] = name += " after " + after;
+            value["definition"] = "as it stood at the end of step " + after;
+            value["grid_error"] = nullptr;
+            if (!value.at("unit").get<std::string>().empty()) add_metric(value, metrics);
+        }
+        put(targets, targets_.place(target_column(name, target.at("feature"), several_)),
+            target.at("verdict"));
     }
 
     bool add_metric(const json& metric, std::vector<std::string>& cells) {

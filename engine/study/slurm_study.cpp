@@ -241,18 +241,29 @@ std::string look_after_round(const std::string& folder, const Study& study,
                            missing);
     if (round.retry < study.slurm.retries_killed) {
         const SlurmAnswer answer = submit_missing(folder, study, cost, round.retry + 1);
-        return fmt::format("{} points whose tasks were killed are submitted once more: job {}",
-                           missing, joined(answer.round.arrays, ", "));
+        return fmt::format(
+            "{} points whose tasks were killed, or stopped at the end of their time, "
+            "are submitted once more: job {}",
+            missing, joined(answer.round.arrays, ", "));
     }
+    std::size_t given_up = 0;
     for (std::size_t index = 0; index < study.points; ++index) {
         const std::string name = point_name(study, index);
         if (std::find(begun.begin(), begun.end(), name) != begun.end() &&
-            !PointFolder::is_finished(folder, name))
+            !PointFolder::is_finished(folder, name)) {
             record_killed_point(
                 folder, study, index, round.retry + 1,
                 fmt::format("its task was killed, {} times in all", round.retry + 1));
+            ++given_up;
+        }
     }
-    return "tasks were killed as often as retries allow; their points are given up";
+    std::string text = "nothing is submitted any more: slurm.retries.killed is used up";
+    if (given_up > 0) text += fmt::format("; {} points are given up", given_up);
+    if (missing > given_up)
+        text += fmt::format("; {} points are missing, and what was stopped has its state: the same "
+                            "command goes on",
+                            missing - given_up);
+    return text;
 }
 
 } // namespace rille::engine

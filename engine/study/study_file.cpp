@@ -104,7 +104,6 @@ void read_slurm(StudyReading& r) {
         slurm.lines.push_back(line.text);
     slurm.warn_before_kill_s = entry["warn_before_kill"].number;
     slurm.retries_killed = static_cast<int>(entry["retries"]["killed"].number);
-    slurm.retries_numerics = static_cast<int>(entry["retries"]["numerics"].number);
 }
 
 /// A case file that was given in place of a study.
@@ -130,7 +129,7 @@ void read_base(StudyReading& r, const std::vector<std::string>& overrides) {
     if (document.is_map()) {
         apply_overrides(document, overrides, own);
         r.plan.document = document;
-        BuiltCase built = build_case(document, r.plan.base_name, r.plan.base_folder, true, own);
+        BuiltCase built = build_case(document, r.plan.base_name, r.plan.base_folder, r.is_new, own);
         r.base_root = std::move(built.root);
         r.study.base = std::move(built.result);
     }
@@ -196,8 +195,11 @@ void read_keep_and_slurm(StudyReading& r) {
     read_slurm(r);
 }
 
-Study load_study(const std::string& path, const std::vector<std::string>& overrides) {
+namespace {
+
+Study read_study(const std::string& path, const std::vector<std::string>& overrides, bool is_new) {
     StudyReading r;
+    r.is_new = is_new;
     const YamlNode node = read_yaml_file(path, r.problems);
     if (!node.is_map()) r.problems.throw_if_any();
     if (is_case(node)) {
@@ -217,12 +219,24 @@ Study load_study(const std::string& path, const std::vector<std::string>& overri
     read_answer(r);
     read_comparison(r);
     read_keep_and_slurm(r);
-    if (r.problems.empty()) check_points(r);
+    if (r.problems.empty()) {
+        r.study.design = std::make_shared<Study::Plan>(r.plan);
+        if (is_new) check_points(r);
+    }
     r.problems.throw_if_any();
     list_constants(r);
     write_resolved(r);
-    r.study.design = std::make_shared<Study::Plan>(std::move(r.plan));
     return std::move(r.study);
+}
+
+} // namespace
+
+Study load_study(const std::string& path, const std::vector<std::string>& overrides) {
+    return read_study(path, overrides, true);
+}
+
+Study reload_study(const std::string& path) {
+    return read_study(path, {}, false);
 }
 
 } // namespace rille::engine

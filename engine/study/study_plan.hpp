@@ -93,6 +93,7 @@ struct StudyReading {
     Entry root;                     ///< of the study file
     Entry base_root;                ///< of the base case
     std::vector<const Rule*> rules; ///< of each column
+    bool is_new = true;             ///< not read before: everything is to be checked
     bool has_lost_columns = false;  ///< a path was wrong: what names it is not reported again
     Problems problems;
 };

@@ -143,6 +143,13 @@ std::vector<std::string> point_overrides(const Study& study, const StudyPoint& p
     return overrides;
 }
 
+std::string point_case(const Study& study, std::size_t index) {
+    Problems problems;
+    const BuiltCase built = build_point(study, index, false, problems);
+    problems.throw_if_any();
+    return built.result.resolved_yaml;
+}
+
 std::string point_name(const Study& study, std::size_t index) {
     const std::size_t width = std::max<std::size_t>(4, std::to_string(study.points).size());
     return fmt::format("{:0{}}", index + 1, width);
@@ -162,7 +169,6 @@ BuiltCase build_point(const Study& study, std::size_t index, bool with_arrivals,
 void check_points(StudyReading& r) {
     check_links(r);
     if (!r.problems.empty()) return;
-    r.study.design = std::make_shared<Study::Plan>(r.plan);
     for (const std::size_t index : covering_points(r.study, r.plan)) {
         Problems own;
         build_point(r.study, index, false, own);

@@ -145,8 +145,9 @@ Rule slurm_rule() {
              .by_default("120 s"),
          map_rule("retries",
                   {integer_rule("killed", {0, 100}, "of a point that was killed").by_default("2"),
-                   integer_rule("numerics", {0, 100}, "of a point that failed in numerics")
-                       .by_default("0")},
+                   refused_rule("numerics", "a point that failed in numerics would fail again, bit "
+                                            "for bit; change the case (spacing, "
+                                            "sampling.renew_after), then --retry failed")},
                   "how often a point is run again")
              .by_default("{}")},
         "how points are handed to a Slurm cluster");

@@ -26,6 +26,15 @@ export const launch = () => chromium.launch({
            '--use-gl=angle', '--use-angle=swiftshader', '--enable-unsafe-swiftshader'],
 });
 
+/* How long [ms] anything may take that a busy machine delays. */
+const patience = 120000;
+
+/* Waits for what the browser tells on its own; the check that follows says if it never came. */
+export const until = async holds => {
+    for (const end = Date.now() + 20000; !holds() && Date.now() < end;)
+        await new Promise(done => setTimeout(done, 50));
+};
+
 const isLocal = url => /^(file|data|blob):/.test(url);
 
 /* A page with what went wrong in it: errors of its scripts, violations of its policy, and requests to
@@ -33,6 +42,7 @@ const isLocal = url => /^(file|data|blob):/.test(url);
 export const open = async (browser, file, width = 1280, height = 900, prepare = null) => {
     const page = await browser.newPage({viewport: {width, height}, acceptDownloads: true});
     const errors = [], requests = [];
+    page.setDefaultTimeout(patience);
     page.on('pageerror', error => errors.push(String(error)));
     page.on('console', message => {
         if (message.type() === 'error') errors.push(message.text());
@@ -58,7 +68,7 @@ export const overflow = page => page.evaluate(
 /* The content of what a click saves. */
 export const saved = async (page, selector) => {
     const [download] = await Promise.all([
-        page.waitForEvent('download', {timeout: 20000}), page.locator(selector).click()]);
+        page.waitForEvent('download', {timeout: patience}), page.locator(selector).click()]);
     const parts = [];
     for await (const part of await download.createReadStream()) parts.push(part);
     return {name: download.suggestedFilename(), content: Buffer.concat(parts)};

@@ -1,6 +1,6 @@
 // SPDX-License-Identifier: Apache-2.0
 import {readFileSync, writeFileSync} from 'node:fs';
-import {check, conclude, equal, isClean, launch, open, overflow, pngSize, saved} from './browser.mjs';
+import {check, conclude, equal, isClean, launch, open, overflow, pngSize, saved, until} from './browser.mjs';
 
 const work = process.argv[2];
 const browser = await launch();
@@ -72,13 +72,17 @@ const wrongMetrics = (shown, metrics) => metrics.filter(metric => {
     check(Math.abs(middle - last / 2) <= 1, `moment after a click in the middle: ${middle} of ${last}`);
     const depth = await page.locator('.moment-values td').first().textContent();
     equal(depth, moments[middle].values[0][1], 'depth beside the slider');
+    await page.clock.install(); // time goes on when it is told to, however busy the machine is
     await page.locator('.play').click();
-    await page.waitForFunction(at => !document.querySelectorAll('#profile-over-time .moment')[at]
-        .hasAttribute('display'), middle + 1, {timeout: 5000});
+    await page.clock.runFor(400);
+    equal(await shown(), String(middle + 1), 'moment after the first step of play');
     await page.locator('.play').click();
-    const paused = await shown();
-    await page.waitForTimeout(600);
-    equal(await shown(), paused, 'moment while paused');
+    await page.clock.runFor(5000);
+    equal(await shown(), String(middle + 1), 'moment while paused');
+    await page.locator('.play').click();
+    await page.clock.runFor(400 * moments.length);
+    equal(await shown(), String(last), 'moment at the end of play');
+    equal(await page.locator('.play').textContent(), 'Play', 'button at the end of play');
     isClean(opened, 'slider');
     await page.close();
 }
@@ -141,7 +145,7 @@ const wrongMetrics = (shown, metrics) => metrics.filter(metric => {
 
 // Every page at both widths; runs that failed or are there only in part.
 const expected = {done: 'Not cleared.', failed: 'Failed.', killed: 'Not finished.', kept: 'Not cleared.',
-                  hole: 'Done.'};
+                  hole: 'Done.', stopped: 'Interrupted', alive: 'is still going on, or was killed'};
 for (const [name, outcome] of Object.entries(expected))
     for (const width of [1280, 400]) {
         const opened = await open(browser, file(name), width, 900);
@@ -154,6 +158,23 @@ for (const [name, outcome] of Object.entries(expected))
         isClean(opened, `${name} at ${width} px`);
         await opened.page.close();
     }
+
+for (const name of ['stopped', 'alive']) { // What is there of a run that has not ended, and how to go on.
+    const opened = await open(browser, file(name));
+    const {page} = opened;
+    check((await page.locator('.outcome code').textContent()).endsWith(`resume ${work}/${name}`),
+          `${name}: how to go on`);
+    check((await page.locator('.kind').textContent()).includes('not at its end'), `${name}: heading`);
+    check(await page.locator('#curves figure').count() >= 3, `${name}: no curves`);
+    equal((await page.locator('#targets .verdict').allTextContents()).join(), 'undecided,undecided,undecided',
+          `${name}: verdicts`);
+    check((await page.locator('#profile svg').first().textContent()).includes('stopped before its end'),
+          `${name}: the picture could be taken for the end`);
+    const slide = await page.evaluate(() => document.querySelector('#profile template').innerHTML);
+    check(slide.includes('stopped before its end'), `${name}: the slide could be taken for the end`);
+    isClean(opened, name);
+    await page.close();
+}
 
 { // The surface in three dimensions turns by keyboard and mouse and opens up.
     const opened = await open(browser, file('hole'));
@@ -204,6 +225,7 @@ for (const [name, outcome] of Object.entries(expected))
     writeFileSync(`${work}/bad.html`, '<!DOCTYPE html><img src="http://127.0.0.1:9/x.png" alt="">' +
         '<div style="width: 3000px">wide</div><script>nothing.there()</script>');
     const bad = await open(browser, `${work}/bad.html`, 400, 900);
+    await until(() => bad.requests.length > 0 && bad.errors.length > 0);
     check(bad.requests.length === 1, 'a request is not seen');
     check(bad.errors.length >= 1, 'an error is not seen');
     check(await overflow(bad.page) > 0, 'overflow is not seen');
@@ -212,6 +234,7 @@ for (const [name, outcome] of Object.entries(expected))
         '<img src="http://127.0.0.1:9/x.png" alt=""><script>window.leaked = 1</script><main'));
     const leak = await open(browser, `${work}/leak.html`);
     equal(await leak.page.evaluate(() => window.leaked), undefined, 'a foreign script');
+    await until(() => leak.errors.some(text => text.includes('Content Security Policy')));
     check(leak.errors.some(text => text.includes('Content Security Policy')), 'the policy is silent');
 }
 

@@ -20,6 +20,9 @@ const shownNames = ['point', 'status', 'amplitude_V', 'cd_nm', 'bottom_cd_loss_n
                     'target_bottom_cd_loss', 'seconds'];
 const panel = page => page.locator('#chosen');
 const chosenName = async page => (await panel(page).locator('h2').textContent()).replace('Point ', '');
+/* Rows out of view are drawn once they are scrolled to: waits until the focus is on that row. */
+const focusOn = (page, row) => page.waitForFunction(index =>
+    document.activeElement.closest('tr')?.getAttribute('aria-rowindex') === String(index), row + 1);
 const firstColumn = page => page.locator('#points-table tbody .choose').allTextContents();
 
 { // The numbers of the table are those of results.csv.
@@ -85,8 +88,10 @@ const firstColumn = page => page.locator('#points-table tbody .choose').allTextC
     equal(await page.locator('#answer > .frame:not(.narrow) .point[tabindex="0"]').count(), 1, 'stops in a drawing');
     await page.locator('#points-table .choose').first().focus();
     await page.keyboard.press('End');
+    await focusOn(page, rows.study.length);
     equal(await page.evaluate(() => document.activeElement.textContent), rows.study.at(-1).point, 'row after End');
     await page.keyboard.press('ArrowUp');
+    await focusOn(page, rows.study.length - 1);
     await page.keyboard.press('Enter');
     equal(await chosenName(page), rows.study.at(-2).point, 'row chosen by Enter');
     isClean(opened, 'keyboard');
@@ -146,8 +151,7 @@ const firstColumn = page => page.locator('#points-table tbody .choose').allTextC
     console.log(`sorted twice in ${Date.now() - started} ms`);
     await page.locator('#points-table .choose').first().focus();
     await page.keyboard.press('End');
-    await page.waitForFunction(count => document.activeElement.closest('tr')?.getAttribute('aria-rowindex') === String(count),
-                               rows.large.length + 1);
+    await focusOn(page, rows.large.length);
     const tsv = (await saved(page, '#points-table .tsv')).content.toString();
     equal(tsv.trimEnd().split('\n').length, rows.large.length + 1, 'lines of the TSV');
     isClean(opened, 'large');

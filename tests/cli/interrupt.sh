@@ -36,13 +36,25 @@ import json, sys, xml.dom.minidom
 out = sys.argv[1]
 record = json.load(open(out + "/run.json"))
 assert record["status"] == "interrupted", record["status"]
-json.load(open(out + "/metrics.json"))
+metrics = json.load(open(out + "/metrics.json"))
+assert metrics["final"] is False
+assert all(t["verdict"] == "undecided" and "has not come to its end" in t["reason"] for t in metrics["targets"])
 xml.dom.minidom.parse(out + "/profile.svg")
 xml.dom.minidom.parse(out + "/front.pvd")
 assert len(open(out + "/history.csv").read().splitlines()) >= 2
 P
     grep -q 'stopping' "$out.log" || { echo "FAILED: not said"; exit 1; }
     "$rille" measure "$out" | grep -q 'nm' || { echo "FAILED: measure"; exit 1; }
+    "$rille" measure "$out" --json | cmp - "$out/metrics.json" || { echo "FAILED: measured again"; exit 1; }
+    grep -q "^rille resume $out takes it up" "$work/${signal%:*}.txt" || { echo "FAILED: no way on is told"; exit 1; }
+    cp "$out/report.html" "$work/before.html"
+    "$rille" report "$out" --quiet
+    for page in "$work/before.html" "$out/report.html"; do
+        for words in 'Interrupted</strong> before the end' "rille resume $out<" 'stopped before its end' \
+            'Run, not at its end' 'Where it stands'; do
+            grep -q "$words" "$page" || { echo "FAILED: the report does not say: $words"; exit 1; }
+        done
+    done
 done
 
 whole() { # every file under its final name can be read, and the case can be run again

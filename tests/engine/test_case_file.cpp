@@ -82,6 +82,22 @@ TEST_CASE("the trench example is read into inside units") {
     CHECK(c.targets[2].at_least == 40);
 }
 
+TEST_CASE("a target may hold at the end of a step") {
+    const Case c = load_case(trench, {"targets={mask left: {at_least: 40 nm, after: main}, bottom "
+                                      "cd: {at_least: 50 nm, at_most: 65 nm}, bow: at most 4 nm}"});
+    REQUIRE(c.targets.size() == 3);
+    CHECK(c.targets[0].after == "main");
+    CHECK(c.targets[0].at_least == 40);
+    CHECK_FALSE(c.targets[0].at_most.has_value());
+    CHECK(c.targets[0].text == "at least 40 nm");
+    CHECK(c.targets[1].after.empty());
+    CHECK(c.targets[1].at_most == 65);
+    CHECK(c.targets[1].text == "50 nm to 65 nm");
+    const Case again = parse_case(c.resolved_yaml, "resolved.yaml", "/nowhere");
+    CHECK(again.targets[0].after == "main");
+    CHECK(again.resolved_yaml == c.resolved_yaml);
+}
+
 TEST_CASE("the via example is read too") {
     const Case c = load_case(via);
     CHECK(c.domain.symmetry == geometry::Symmetry::full);

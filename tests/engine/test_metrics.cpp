@@ -256,3 +256,36 @@ TEST_CASE("targets: the standing of parameters keeps a verdict open, and is name
     c.targets[0].metric = "bow of other";
     CHECK(judge_targets(c, m)[0].reason.find("no metric") != std::string::npos);
 }
+
+TEST_CASE("targets at the end of a step are judged by what was measured there") {
+    Case c = tests::trench_case();
+    c.standing = {{fluxes::Standing::published, 14}};
+    Target early;
+    early.metric = "mask left";
+    early.at_least = 100;
+    early.text = "at least 100 nm";
+    early.after = "main";
+    Target late = early;
+    late.after.clear();
+    Target unknown = early;
+    unknown.after = "over";
+    c.targets = {early, late, unknown};
+    CHECK(is_measured_after(c, "main"));
+    CHECK_FALSE(is_measured_after(c, "ash"));
+    Metrics m;
+    m.metrics = {{"mask left", "trench", 80.0, "nm", 1, "", ""}};
+    m.after = {{"main", 40, {{"mask left", "trench", 120.0, "nm", 2, "", ""}}}};
+    const auto verdicts = judge_targets(c, m);
+    REQUIRE(verdicts.size() == 3);
+    CHECK(verdicts[0].verdict == Verdict::met);
+    CHECK(verdicts[0].target == "mask left after main: at least 100 nm");
+    CHECK(verdicts[0].value == 120);
+    CHECK(verdicts[0].after == "main");
+    CHECK(verdicts[1].verdict == Verdict::missed);
+    CHECK(verdicts[1].after.empty());
+    CHECK(verdicts[2].verdict == Verdict::undecided);
+    CHECK(verdicts[2].reason == "nothing is known of the end of step over");
+    const auto json = metrics_json(c, m);
+    CHECK(json["after_steps"][0]["step"] == "main");
+    CHECK(json["after_steps"][0]["metrics"][0]["value"] == 120);
+}

@@ -1,5 +1,5 @@
 // SPDX-License-Identifier: Apache-2.0
-#include "fluxes/exchange.hpp"
+#include "fluxes/exact_exchange.hpp"
 #include "fluxes/surface_chemistry.hpp"
 #include "fluxes/surface_step.hpp"
 #include "tests/support/shapes.hpp"
@@ -66,13 +66,13 @@ struct Scene {
     /// that the sticking of its responses, times `fault`, gives.
     double miss(const SurfaceStep& step, double fault) const {
         const RayCaster caster(domain, surface, 2.0);
-        const Exchange exchange(domain, surface, caster, {64, 1, 0});
+        const ExactExchange exchange(domain, surface, caster, {});
         double worst = 0;
         for (std::size_t k = 0; k < sources.neutrals.size(); ++k) {
             std::vector<double> sticking;
             for (const SurfaceResponse& r : step.response)
                 sticking.push_back(fault * r.sticking[k]);
-            const auto flux = exchange.solve(sticking, -1, {});
+            const auto flux = exchange.solve(sticking);
             for (std::size_t e = 0; e < flux.size(); ++e)
                 worst = std::max(
                     worst, std::fabs(flux[e] - step.neutral[k][e] / sources.neutrals[k].flux));

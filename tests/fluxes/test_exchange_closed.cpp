@@ -1,15 +1,13 @@
 // SPDX-License-Identifier: Apache-2.0
 #include "fluxes/exchange.hpp"
+#include "tests/support/closed_table.hpp"
 #include "tests/support/shapes.hpp"
 #include "tests/support/statistics.hpp"
 
 #include <catch2/catch.hpp>
 
 #include <cmath>
-#include <fstream>
-#include <functional>
 #include <map>
-#include <sstream>
 #include <string>
 
 using namespace rille;
@@ -22,48 +20,12 @@ namespace {
 
 constexpr double diameter = 20;
 
-/// Rows of a table by (AR, s_w, s_b), each a map from column to value.
-std::map<std::array<double, 3>, std::map<std::string, double>> read_table(const std::string& name) {
-    std::ifstream file(std::string(RILLE_TESTS) + "/data/" + name);
-    std::string line;
-    std::vector<std::string> header;
-    std::map<std::array<double, 3>, std::map<std::string, double>> table;
-    while (std::getline(file, line)) {
-        if (line.empty() || line[0] == '#') continue;
-        std::stringstream cells(line);
-        std::string cell;
-        std::vector<std::string> words;
-        while (std::getline(cells, cell, ','))
-            words.push_back(cell);
-        if (header.empty()) {
-            header = words;
-            continue;
-        }
-        std::map<std::string, double> row;
-        for (std::size_t i = 0; i < words.size(); ++i)
-            row[header[i]] = std::stod(words[i]);
-        table[{row["AR"], row["s_w"], row["s_b"]}] = row;
-    }
-    return table;
-}
-
 /// A closed feature with its table.
 struct Feature {
     Domain domain;
     Surface surface;
     double depth = 0;
 };
-
-/// A closed feature of an aspect ratio; of a hole `fineness` 1 or 2.
-using Shape = std::function<Feature(double aspect, int fineness)>;
-
-Feature trench(double aspect, int) {
-    Feature f;
-    f.domain.cells_x = 30;
-    f.depth = aspect * diameter;
-    f.surface = tests::trench(f.domain, diameter, f.depth, 1);
-    return f;
-}
 
 /// A polygon of the same area stands for the circle, rings for the wall: the fluxes err as the
 /// square of their size (0.03 and 0.01 % of the floor at fineness 1 and 2).
@@ -147,14 +109,13 @@ std::map<std::string, std::vector<double>> values_of(const Feature& f,
 /// Pulls of the named quantities against the table; `fault` scales the computed values. Holes are
 /// computed at two finenesses and extrapolated by the square of the size of their elements. Means
 /// over n scrambles have Student pulls: scaled to unit variance by sqrt((n - 3) / (n - 1)).
-void compare(const Shape& shape, bool extrapolated, const std::map<std::string, double>& row,
-             const std::vector<std::string>& names, int scrambles, double fault, Comparison& out) {
+void compare(const std::map<std::string, double>& row, const std::vector<std::string>& names,
+             int scrambles, double fault, Comparison& out) {
     const double aspect = row.at("AR"), unit = std::sqrt((scrambles - 3.0) / (scrambles - 1));
-    auto values = values_of(shape(aspect, extrapolated ? 2 : 1), row, names, scrambles, 0);
-    if (extrapolated)
-        for (auto& [name, coarse] : values_of(shape(aspect, 1), row, names, scrambles, 1))
-            for (int r = 0; r < scrambles; ++r)
-                values[name][r] += (values[name][r] - coarse[r]) / 3;
+    auto values = values_of(hole(aspect, 2), row, names, scrambles, 0);
+    for (auto& [name, coarse] : values_of(hole(aspect, 1), row, names, scrambles, 1))
+        for (int r = 0; r < scrambles; ++r)
+            values[name][r] += (values[name][r] - coarse[r]) / 3;
     for (const auto& [name, value] : values) {
         const tests::Mean mean(value);
         const double exact = row.at(name);
@@ -164,26 +125,19 @@ void compare(const Shape& shape, bool extrapolated, const std::map<std::string, 
     }
 }
 
-/// Quantities of one run hang together, so each run is asked for one place (trench) or two far
-/// apart (hole) only, in turn.
-Comparison compare_all(const Shape& shape, const std::string& table,
-                       const std::vector<double>& aspects,
+/// Quantities of one run hang together, so each run is asked for two places far apart, in turn.
+Comparison compare_all(const std::vector<double>& aspects,
                        const std::vector<std::array<double, 2>>& stickings, int scrambles,
                        double fault = 1) {
-    const bool two = table == "closed_cylinder.csv";
-    const std::vector<std::vector<std::string>> places =
-        two ? std::vector<std::vector<std::string>>{{"H_0.10", "bottom_avg"},
-                                                    {"H_0.10", "H_0.90"},
-                                                    {"H_0.25", "bottom_avg"}}
-            : std::vector<std::vector<std::string>>{{"bottom_avg"}, {"H_0.10"}, {"H_0.50"},
-                                                    {"bottom_avg"}, {"H_0.90"}, {"H_wall_mean"}};
-    const auto rows = read_table(table);
+    const std::vector<std::vector<std::string>> places{
+        {"H_0.10", "bottom_avg"}, {"H_0.10", "H_0.90"}, {"H_0.25", "bottom_avg"}};
+    const auto rows = tests::read_keyed_table<3>("closed_cylinder.csv");
     Comparison out;
     int turn = 0;
     for (const double aspect : aspects)
         for (const auto& s : stickings)
-            compare(shape, two, rows.at({aspect, s[0], s[1]}), places[turn++ % places.size()],
-                    scrambles, fault, out);
+            compare(rows.at({aspect, s[0], s[1]}), places[turn++ % places.size()], scrambles, fault,
+                    out);
     return out;
 }
 
@@ -202,22 +156,13 @@ void check(const Comparison& c) {
 
 } // namespace
 
-TEST_CASE("neutrals in a closed trench", "[neutrals]") {
-    // Oracle: impinging flux on floor and walls of a closed trench, table closed_trench.csv.
-    // Source: computed (integral equation, 1e-8).
-    // Tolerance: 52 independent bins, chi2/nu within 1 +- 4 sqrt(2/nu), largest pull < 4.5, mean
-    // pull < 4/sqrt(n); standard errors < 1 %; values 2 % high must fail.
-    check(compare_all(trench, "closed_trench.csv", {1, 2, 5, 10}, stickings, 20));
-    const auto off = compare_all(trench, "closed_trench.csv", {1, 2}, stickings, 16, 1.02);
-    CHECK_FALSE(tests::Pulls(off.pulls).agree());
-}
-
 TEST_CASE("neutrals in a closed round hole", "[neutrals]") {
     // Oracle: impinging flux on floor and walls of a closed hole, table closed_cylinder.csv.
     // Source: computed (integral equation, 1e-8).
-    // Tolerance: as for the trench.
-    check(compare_all(hole, "closed_cylinder.csv", {1, 2}, stickings, 6));
-    const auto off = compare_all(hole, "closed_cylinder.csv", {1}, stickings, 6, 1.02);
+    // Tolerance: 52 independent bins, chi2/nu within 1 +- 4 sqrt(2/nu), largest pull < 4.5, mean
+    // pull < 4/sqrt(n); standard errors < 1 %; values 2 % high must fail.
+    check(compare_all({1, 2}, stickings, 6));
+    const auto off = compare_all({1}, stickings, 6, 1.02);
     CHECK_FALSE(tests::Pulls(off.pulls).agree());
 }
 
@@ -225,5 +170,5 @@ TEST_CASE("neutrals in deep closed holes", "[neutrals][long]") {
     // Oracle: impinging flux on floor and walls of a closed hole, table closed_cylinder.csv.
     // Source: computed (integral equation, 1e-8).
     // Tolerance: as above.
-    check(compare_all(hole, "closed_cylinder.csv", {1, 2, 5, 10}, stickings, 16));
+    check(compare_all({1, 2, 5, 10}, stickings, 16));
 }

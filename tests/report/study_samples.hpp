@@ -42,9 +42,11 @@ struct StudySample {
     /// Status of point i; "" = not run.
     std::function<std::string(std::size_t)> status = [](std::size_t) { return "done"; };
 
-    std::size_t points() const { return amplitudes.size() * openings.size(); }
+    bool is_grid = true; ///< false: point i has amplitudes[i] and openings[i]
+
+    std::size_t points() const { return amplitudes.size() * (is_grid ? openings.size() : 1); }
     double amplitude(std::size_t i) const { return amplitudes[i % amplitudes.size()]; }
-    double opening(std::size_t i) const { return openings[i / amplitudes.size()]; }
+    double opening(std::size_t i) const { return openings[is_grid ? i / amplitudes.size() : i]; }
     double loss(std::size_t i) const {
         return 0.5 + 0.006 * amplitude(i) + 0.02 * (opening(i) - 30) + 1e-7 * double(i);
     }
@@ -59,7 +61,7 @@ inline engine::Study study_of(const StudySample& sample) {
                      {"mask.openings.line.cd", "cd", "nm", false, "", false},
                      {"plasmas.main.ion_flux", "ion_flux", "mA/cm2", true, "", false}};
     study.points = sample.points();
-    study.plan = "full grid";
+    study.plan = sample.is_grid ? "full grid" : "latin hypercube";
     study.constants = {"pressure of main stays 10 mTorr while rf_bias.amplitude changes",
                        "pitch stays 400 nm while cd changes"};
     return study;

@@ -2,8 +2,10 @@
 #include "engine/output_folder.hpp"
 #include "engine/report/case_difference.hpp"
 #include "engine/report/compare_page.hpp"
+#include "engine/study/study_folder.hpp"
 #include "tests/report/chart_samples.hpp"
 #include "tests/report/study_samples.hpp"
+#include "tests/study/study_samples.hpp"
 
 #include <catch2/catch.hpp>
 
@@ -38,6 +40,10 @@ void write_run(const std::string& folder, double bottom, double error, double bo
          {{{"target", "bow: at most 4 nm"},
            {"metric", "bow"},
            {"feature", "line"},
+           {"after", ""},
+           {"value", bow},
+           {"unit", "nm"},
+           {"sampling_error", 0.3},
            {"verdict", bow < 4 ? "met" : "missed"},
            {"by_numbers", bow < 4 ? "met" : "missed"},
            {"reason", ""}}}}};
@@ -122,4 +128,41 @@ TEST_CASE("values of a case by their names") {
     const auto differences = case_differences({values, {{"a", "2"}, {"words", "[b, c]"}}});
     CHECK(differences.size() == values.size() - 1);
     CHECK(differences[0].path == "a");
+}
+
+TEST_CASE("side by side: points of a study differ in what the study varies") {
+    const tests::StudyFolder folder;
+    const Study study = folder.load("vary: {plasmas.main.rf_bias.amplitude: [100 V, 200 V], "
+                                    "mask.openings.line.cd: [60 nm]}\n");
+    const std::string out = folder.path("out");
+    prepare_study_folder(out, study, study_sources(study), false);
+    const auto write_point = [&](const std::string& name, std::size_t index, const char* volts) {
+        const std::string point = out + "/points/" + name;
+        write_run(point, 60 - double(index), 0.3, 3.0, "0 V");
+        for (const char* file : {"/case.yaml", "/run.json"})
+            std::filesystem::remove(point + file);
+        std::ofstream(point + "/point.json")
+            << nlohmann::json{{"point", index}, {"status", "done"}, {"values", {volts, "60 nm"}}};
+        return point;
+    };
+    const std::string first = write_point("0001", 0, "100 V");
+    const std::string second = write_point("0002", 1, "200 V");
+    std::string html = page_html(compare_report({first, second + "/"}).page);
+    CHECK(has(html, "plasmas.main.rf_bias.amplitude"));
+    CHECK(has(html, "200 V"));
+    CHECK_FALSE(has(html, "mask.openings.line.cd")); // 60 nm in both
+    CHECK_FALSE(has(html, "keeps no case.yaml"));
+    // A run of its own with the same case but for one value that the study does not vary.
+    const std::string run = folder.path("run");
+    write_run(run, 58, 0.3, 3.0, "0 V");
+    std::string text = point_case(study, 0);
+    const std::size_t at = text.find("thickness: 60 nm");
+    REQUIRE(at != std::string::npos);
+    std::ofstream(run + "/case.yaml") << text.replace(at, 16, "thickness: 55 nm");
+    html = page_html(compare_report({first, run}).page);
+    CHECK(has(html, "55 nm"));
+    CHECK_FALSE(has(html, "rf_bias.amplitude"));
+    // A study that was changed since is not asked.
+    write_point("0002", 1, "300 V");
+    CHECK(has(page_html(compare_report({first, second}).page), "lies in no study"));
 }

@@ -242,6 +242,57 @@ TEST_CASE("study page: slices of further axes, plans that are no grid") {
     CHECK(charts[0].first == "CD 30 nm");
 }
 
+TEST_CASE("study page: the points of a hypercube stand against each input") {
+    const TemporaryFolder folder;
+    StudySample sample;
+    sample.is_grid = false;
+    sample.amplitudes.clear();
+    sample.openings.clear();
+    for (int i = 0; i < 40; ++i) { // every part of both axes once
+        sample.amplitudes.push_back(100 + 17.5 * i);
+        sample.openings.push_back(30 + 4.25 * ((i * 17) % 40));
+    }
+    sample.status = [](std::size_t i) {
+        return i == 3 ? "failed" : i < 2 ? "not cleared" : "done";
+    };
+    write_study(folder.path, sample);
+    const StudyView view = read_study_view(folder.path);
+    const auto charts = scatter_charts(view, view.y.value());
+    REQUIRE(charts.size() == 2); // the linked ion flux has none
+    CHECK(charts[0].text.title == "bottom CD loss against amplitude");
+    CHECK(charts[1].text.title == "bottom CD loss against CD");
+    for (const LineChart& chart : charts) {
+        REQUIRE(chart.lines.size() == 1);
+        CHECK_FALSE(chart.lines[0].is_joined);
+        REQUIRE(chart.lines[0].points.size() == 39);
+        int open = 0;
+        for (const ChartPoint& point : chart.lines[0].points) {
+            const std::size_t row = std::stoul(point.key);
+            CHECK(point.y == Approx(sample.loss(row)));
+            CHECK(point.error == Approx(StudySample::error(row)));
+            CHECK(point.x ==
+                  Approx(&chart == &charts[0] ? sample.amplitude(row) : sample.opening(row)));
+            open += point.is_open;
+        }
+        CHECK(open == 2);
+        REQUIRE(chart.text.notes.size() == 2);
+        CHECK(has(chart.text.notes[0], "Open markers"));
+        CHECK(chart.text.notes[1] == "No value from 1 point.");
+    }
+    const StudyReport report = study_report(folder.path);
+    const std::string html = page_of(folder.path, "study_hypercube");
+    CHECK(has(html, "id=\"scatter\""));
+    CHECK(has(html, "do not line up"));
+    CHECK_FALSE(has(html, "id=\"maps\""));
+    for (const Figure& figure : report.figures)
+        for (const std::string* svg : {&figure.svg, &figure.slide})
+            CHECK(tests::text_faults(std::regex_replace(*svg, std::regex("&[a-z]+;"), "_")) ==
+                  std::vector<std::string>{});
+    // The points of a grid line up: maps instead.
+    write_study(folder.path, StudySample{});
+    CHECK_FALSE(has(page_of(folder.path), "id=\"scatter\""));
+}
+
 TEST_CASE("study page: ten thousand points stay small and quick") {
     const TemporaryFolder folder;
     StudySample sample;

@@ -67,17 +67,21 @@ TEST_CASE("what a study leaves beside its points gives the same points again") {
     folder.write("out/base/case.yaml", study.base.resolved_yaml);
     for (const InputFile& file : study.inputs)
         folder.write("out/" + file.name, file.content);
-    const Study again = load_study(folder.path("out/study.yaml"));
-    REQUIRE(again.points == study.points);
-    for (std::size_t i = 0; i < study.points; ++i) {
-        CHECK(texts(again, i) == texts(study, i));
-        const auto overrides = point_overrides(again, study_point(again, i));
-        const Case first = load_case(folder.path("case.yaml"), overrides);
-        const Case second = load_case(folder.path("out/base/case.yaml"), overrides);
-        CHECK(first.resolved_yaml == second.resolved_yaml);
+    const std::string left = folder.path("out/study.yaml");
+    for (const Study& again : {load_study(left), reload_study(left)}) {
+        REQUIRE(again.points == study.points);
+        for (std::size_t i = 0; i < study.points; ++i) {
+            CHECK(texts(again, i) == texts(study, i));
+            const auto overrides = point_overrides(again, study_point(again, i));
+            const Case first = load_case(folder.path("case.yaml"), overrides);
+            const Case second = load_case(folder.path("out/base/case.yaml"), overrides);
+            CHECK(first.resolved_yaml == second.resolved_yaml);
+        }
+        CHECK(again.resolved_yaml == study.resolved_yaml);
+        CHECK(again.constants == study.constants);
+        CHECK(again.warnings == study.warnings);
+        CHECK(again.base.resolved_yaml == study.base.resolved_yaml);
     }
-    CHECK(again.resolved_yaml == study.resolved_yaml);
-    CHECK(again.constants == study.constants);
 }
 
 TEST_CASE("ranges have exact ends and short texts") {
@@ -205,6 +209,9 @@ TEST_CASE("a study that cannot be is refused before any run") {
         "\"1000000000\" is out of range; allowed is at least 1 and at most 1000000");
     has(folder.problems("vary: {mask.thickness: [20 nm, 20 nm]}\n"), "stands twice in the list");
     has(folder.problems("vary: {mask.thickness: [20 nm]}\nplan: every second\n"), "full grid");
+    has(folder.problems("vary: {mask.thickness: [20 nm]}\nslurm: {retries: {numerics: 1}}\n"),
+        "study.yaml:4:19: slurm.retries.numerics: a point that failed in numerics would fail "
+        "again");
     has(folder.problems("vary: {plasmas.main.rf_bias.amplitude: [1 V]}\nanswer: {y: depth centre, "
                         "x: cd}\n"),
         "\"cd\" is not varied; there are: amplitude");

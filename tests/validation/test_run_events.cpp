@@ -231,6 +231,7 @@ TEST_CASE("sixty-four pairs cost little more than one film", "[validation][event
 TEST_CASE("an opening that closes or fills is told when it happens", "[validation][events]") {
     const ScratchFolder scratch;
     const double sticking = GENERATE(1.0, 0.002);
+    const bool round = GENERATE(false, true); // a hole narrows faster than a trench
     std::ofstream chemistry(scratch / "growth.yaml");
     chemistry << "format: 1\ntitle: growth\nions: [Ar+]\nneutrals: [CF2]\nmaterials:\n";
     const std::string number =
@@ -250,7 +251,8 @@ TEST_CASE("an opening that closes or fills is told when it happens", "[validatio
     const std::string flux = sticking == 1 ? "2.4e15" : "1.2e18";
     const Outcome out = run_text(R"(format: 1
 title: growth
-symmetry: extruded
+symmetry: )" + std::string(round ? "revolved" : "extruded") +
+                                     R"(
 pitch: 64 nm
 sides: mirror
 spacing: )" + std::string(sticking == 1 ? "2" : "4") +
@@ -261,7 +263,8 @@ mask:
   material: amorphous carbon
   thickness: 40 nm
   openings:
-    - {name: trench, shape: trench, cd: 20 nm}
+    - {name: trench, shape: )" + std::string(round ? "round" : "trench") +
+                                     R"(, cd: 20 nm}
 plasmas:
   main:
     ion_flux: 1e-6 mA/cm2
@@ -284,9 +287,11 @@ sampling: {ions_per_species: 64, rays_per_point: 64}
         WARN("sticking " << sticking << ", told after " << time << " s: " << text);
     const double closed = out.listener.time_of("a void has closed off");
     const double filled = out.listener.time_of("opening trench is filled to its top");
-    const double told = sticking == 1 ? closed : filled;
-    CHECK((closed >= 0) == (sticking == 1));
-    CHECK((filled >= 0) == (sticking < 1));
+    // Walls that grow evenly meet on a line in a hole: the last of it may close off as a bubble.
+    const bool bubble = round && sticking < 1 && closed >= 0;
+    const double told = sticking == 1 || bubble ? closed : filled;
+    CHECK((closed >= 0) == (sticking == 1 || bubble));
+    CHECK((filled >= 0) == (sticking < 1 && !bubble));
     REQUIRE(told >= 0);
     // A side of the trench grows by at most 1 nm/s; and told long before the run's end.
     CHECK(told > 8);
