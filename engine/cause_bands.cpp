@@ -123,7 +123,7 @@ std::vector<double> AxisScale::ticks(int about) const {
     for (const double nice : {5.0, 2.0, 1.0})
         if (nice * power >= wanted) step = nice * power;
     for (double i = std::ceil(low / step - 1e-9); i * step <= high + 1e-9 * step; ++i)
-        at.push_back(i * step);
+        at.push_back(i * step + 0.0); // no -0
     return at;
 }
 

@@ -29,11 +29,13 @@ std::vector<SectionWalk> walks_of(const Section& section) {
 std::string causes_csv(const Case& c, const SurfaceState& state) {
     const auto supplies = supply_names(c);
     RILLE_CHECK(state.removed.size() == explained + 1 + supplies.size(), "one field per cause");
-    std::string text = "# removed since the start of the run, along the way of the surface, per "
-                       "area of the present one; deposition counts less than 0\n"
-                       "# supply columns: flux times d(rate)/d(flux), summed over the run: what a "
-                       "small change of that flux changes\n# " +
-                       std::string(caution) + "\n";
+    std::string text =
+        "# removed along the way of the surface: from walls since the floor has passed "
+        "them, from floors since the start of the run; deposition counts less than "
+        "0\n"
+        "# supply columns: flux times d(rate)/d(flux), summed over the run: what a "
+        "small change of that flux changes\n# " +
+        std::string(caution) + "\n";
     text += "x_nm,z_nm,arc_length_nm,part,region,material,film";
     for (const CauseLook& look : cause_looks())
         text += std::string(",") + look.column + "_nm";

@@ -103,9 +103,11 @@ Simulation::Simulation(const Case& the_case)
         error_fields_.push_back({"displacement error " + std::to_string(b),
                                  geometry::Carry::intensive,
                                  std::vector<double>(surface_.size(), 0.0)});
-    removed_.assign(
-        unexplained_removal + 1 + fluxes::ion_paths + case_.mechanism.neutrals.size(),
-        {"removed", geometry::Carry::per_area, std::vector<double>(surface_.size(), 0.0)});
+    const std::size_t amounts =
+        unexplained_removal + 1 + fluxes::ion_paths + case_.mechanism.neutrals.size();
+    const std::vector<double> none(surface_.size(), 0.0);
+    removed_.assign(amounts, {"removed from walls", geometry::Carry::per_area, none});
+    removed_.resize(2 * amounts, {"removed from floors", geometry::Carry::intensive, none});
     begin_step();
 }
 

@@ -75,10 +75,11 @@ public:
     const geometry::GrownFilms& films() const { return films_; }
     /// Displacement error of the elements by batch: [batch][element], nm, along -normal.
     std::vector<std::vector<double>> displacement_errors() const;
-    /// What was removed since the start of the run [nm], on the elements of the present surface:
-    /// by each cause (fluxes::CauseRates), then what no cause explains, then what each supply
-    /// brought (SurfaceStep::supply). An amount per area that rides on the front: causes and the
-    /// unexplained add up to the way that the surface has gone.
+    /// What was removed [nm], on the elements of the present surface: by each cause
+    /// (fluxes::CauseRates), then what no cause explains, then what each supply brought
+    /// (SurfaceStep::supply); first from walls since they are walls, as amounts per area, then once
+    /// more from what faces up (normal.z > 0.5) since the start of the run, as values along its
+    /// way. Causes and the unexplained add up to the way that the surface has gone.
     const std::vector<geometry::SurfaceField>& removed() const { return removed_; }
     /// Outermost material of each element.
     std::vector<int> materials() const;

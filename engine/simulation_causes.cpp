@@ -36,9 +36,13 @@ Simulation::Examined Simulation::examine(const fluxes::Mechanism& mechanism,
 /// proportion to their size.
 void Simulation::add_removed(const Trial& trial, const fluxes::SurfaceStep& step) {
     const double dt = trial.report.time;
-    const std::size_t supplies = step.supply.size();
+    const std::size_t supplies = step.supply.size(), floors = removed_.size() / 2;
     for (std::size_t e = 0; e < surface_.size(); ++e) {
         const double moved = trial.report.moved[e];
+        const bool is_floor = surface_.normal[e].z > 0.5;
+        const std::size_t at = is_floor ? floors : 0;
+        for (std::size_t k = 0; k < floors && is_floor; ++k)
+            removed_[k].value[e] = 0; // a wall begins where the floor has left it
         double sum = 0, size = 0;
         for (const auto& cause : step.cause) {
             sum += cause[e];
@@ -46,13 +50,13 @@ void Simulation::add_removed(const Trial& trial, const fluxes::SurfaceStep& step
         }
         const double beyond = moved - sum * dt;
         for (std::size_t k = 0; k < step.cause.size() && size > 0; ++k)
-            removed_[k].value[e] +=
+            removed_[at + k].value[e] +=
                 step.cause[k][e] * dt + beyond * (std::fabs(step.cause[k][e]) / size);
-        if (!(size > 0)) removed_[unexplained_removal].value[e] += moved;
+        if (!(size > 0)) removed_[at + unexplained_removal].value[e] += moved;
         const bool balanced = std::fabs(sum) < 0.1 * size || size == 0;
         const double stretch = balanced ? 1.0 : std::clamp(moved / (sum * dt), 0.5, 2.0);
         for (std::size_t s = 0; s < supplies; ++s)
-            removed_[unexplained_removal + 1 + s].value[e] += step.supply[s][e] * dt * stretch;
+            removed_[at + unexplained_removal + 1 + s].value[e] += step.supply[s][e] * dt * stretch;
     }
 }
 
