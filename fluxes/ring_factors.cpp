@@ -85,8 +85,8 @@ RoundProfile::RoundProfile(const geometry::Domain& domain, const geometry::Surfa
 
 BetweenRings RoundProfile::what_stands_between() const {
     const auto rim = static_cast<std::size_t>(rim_), bottom = static_cast<std::size_t>(bottom_);
-    if (bore_) return {&point_, 0, bottom, bottom, rim + 1};
-    return {&point_, 0, rim, 0, 0};
+    if (bore_) return {&point_, 0, bottom, bottom, rim + 1, {}};
+    return {&point_, 0, rim, 0, 0, {}};
 }
 
 /// Whether no edge that faces away from the axis, solid within, reaches into these heights.
@@ -170,15 +170,17 @@ double RoundProfile::by_horizons(const RingPoint& from, int place) const {
 }
 
 /// The same for any profile, over the disc that the rim spans.
-double RoundProfile::by_windows(const RingPoint& from) const {
+double RoundProfile::by_windows(const RingPoint& from, int place) const {
     const PlanePoint rim = point_[rim_];
     std::vector<CosineRange> scratch;
+    BetweenRings between = what_stands_between();
+    between.own[0] = {std::size_t(place), std::size_t(place + 1)};
+    between.first_bore = std::max(between.first_bore, std::size_t(place + 1));
     double sum = 0;
     for (int g = 0; g < 48; ++g) {
         const double s = (gauss_16().node[g % 16] + g / 16) / 3;
         const RingPoint to{{rim.x * s, rim.z}, {0, -1}};
-        sum += gauss_16().weight[g % 16] / 3 * s *
-               ring_kernel(from, to, what_stands_between(), scratch);
+        sum += gauss_16().weight[g % 16] / 3 * s * ring_kernel(from, to, between, scratch);
     }
     return sum * 2 * 3.14159265358979323846 * rim.x * rim.x;
 }
@@ -206,7 +208,7 @@ double RoundProfile::sky(int place) const {
         else if (clear && is_open_disc(place) && is_open_disc(place + 1))
             return by_discs(place);
         else
-            flux += w * (rising_ ? by_horizons(from, place) : by_windows(from));
+            flux += w * (rising_ ? by_horizons(from, place) : by_windows(from, place));
     }
     return weight > 0 ? std::clamp(flux / weight, 0.0, 1.0) : 1.0;
 }
@@ -221,6 +223,10 @@ double RoundProfile::by_azimuths(const Patches& patches, int i, int j) const {
     const Chord to{point_[corner(j)], point_[corner(j + 1)]};
     Between between{what_stands_between(), {}};
     const int low = std::min(i, j), high = std::max(i, j);
+    for (const int side : {0, 1}) {
+        const int p = side == 0 ? i : j;
+        between.rings.own[side] = {std::size_t(corner(p)), std::size_t(corner(p + 1))};
+    }
     if (corner(low) >= bottom_ && bore_) {
         between.rings.first_bore = corner(low + 1);
         between.rings.last_bore = corner(high) + 1;

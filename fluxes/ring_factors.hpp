@@ -59,7 +59,7 @@ private:
     BetweenRings what_stands_between() const;
     double by_discs(int place) const;
     double by_horizons(const RingPoint& from, int place) const;
-    double by_windows(const RingPoint& from) const;
+    double by_windows(const RingPoint& from, int place) const;
     double by_azimuths(const Patches&, int i, int j) const;
     double integrate(const Chord& from, const Chord& to, int halvings, Between&) const;
     RingPoint on_chord(int first, int last, double part) const;

@@ -148,6 +148,7 @@ double ring_kernel(const RingPoint& from, const RingPoint& to, const BetweenRing
     scratch.clear();
     const double below = std::min(from.at.z, to.at.z), above = std::max(from.at.z, to.at.z);
     for (std::size_t k = between.first_edge; k < between.last_edge; ++k) {
+        if (between.is_own(k)) continue;
         const PlanePoint &p = (*between.point)[k], &q = (*between.point)[k + 1];
         if (std::max(p.z, q.z) <= below || std::min(p.z, q.z) >= above) continue;
         const CosineRange hidden = crossing(from.at, to.at, p, q);

@@ -42,6 +42,11 @@ struct BetweenRings {
     const std::vector<PlanePoint>* point = nullptr;
     std::size_t first_edge = 0, last_edge = 0; ///< edges k -> k + 1, solid on one side, any kind
     std::size_t first_bore = 0, last_bore = 0; ///< vertices with solid outside them
+    /// Edges that belong to the rings themselves, first and last: facing says what they hide.
+    std::array<std::array<std::size_t, 2>, 2> own{};
+    bool is_own(std::size_t edge) const {
+        return (edge >= own[0][0] && edge < own[0][1]) || (edge >= own[1][0] && edge < own[1][1]);
+    }
 };
 
 /// Integral over the azimuth, both ways round, of cos cos / (pi distance^2) between two rings where

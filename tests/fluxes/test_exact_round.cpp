@@ -158,7 +158,8 @@ TEST_CASE("exact exchange: round factors and the mouth add up", "[exact][revolve
                                     : c.name == "hooked mask" ? 1e-2
                                                               : 1e-3));
         CHECK(x.asymmetry() < 1e-10);
-        if (c.name == "straight hole" || c.name == "bowed hole") continue;
+        if (c.name == "straight hole" || c.name == "bowed hole" || c.name == "uneven floor")
+            continue;
         // Fault: patches that see each other in part or not at all, as if nothing stood between.
         const int n = int(x.patches().size());
         const auto place = [&](int p) {
