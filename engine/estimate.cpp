@@ -35,10 +35,6 @@ double elements_per_area(const geometry::Domain& domain) {
     return domain.planar_contour() ? 1 / h : 4 / (pi * h * h);
 }
 
-double seconds_of(const Timings& t) {
-    return t.extract + t.cast + t.fluxes + t.advance + t.carry;
-}
-
 } // namespace
 
 Estimate estimate_run(const Case& the_case) {
@@ -55,8 +51,7 @@ Estimate estimate_run(const Case& the_case) {
     const double h = the_case.domain.spacing;
     simulation.step(top_rate > 0 ? 0.1 * h / top_rate : expected.total_s);
     const Timings& end = simulation.timings();
-    const double seconds =
-        seconds_of(end) - seconds_of(start) + end.fluxes - start.fluxes + end.cast - start.cast;
+    const double seconds = end.sum() - start.sum() + end.solves() - start.solves();
 
     const double now = static_cast<double>(simulation.surface().size());
     const double walls = expected.depth_nm - expected.mask_loss_nm;
