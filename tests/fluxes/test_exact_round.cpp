@@ -171,7 +171,7 @@ TEST_CASE("exact exchange: round factors and the mouth add up", "[exact][revolve
         for (int i = 0; i < n; ++i) {
             double sum = x.mouth(i);
             for (int j = 0; j < n; ++j) {
-                const double free = fluxes::ring_kernel(place(i), place(j), {}, 0, 0, scratch) *
+                const double free = fluxes::ring_kernel(place(i), place(j), {}, scratch) *
                                     x.patches().area(i) * x.patches().area(j);
                 const bool near = std::abs(i - j) < 4;
                 sum += near ? x.factor(i, j) : std::max(x.factor(i, j), free);
