@@ -2,6 +2,7 @@
 #include "fluxes/exact_exchange.hpp"
 
 #include "fluxes/open_sky.hpp"
+#include "fluxes/ring_factors.hpp"
 #include "geometry/check.hpp"
 
 #include <Eigen/Core>
@@ -21,56 +22,72 @@ using Matrix = Eigen::Map<const Eigen::MatrixXd>;
 } // namespace
 
 bool ExactExchange::serves(const geometry::Domain& domain, const geometry::Surface& surface) {
-    return domain.extruded() && !OpenSky(domain, surface).floating_pieces();
+    if (domain.extruded()) return !OpenSky(domain, surface).floating_pieces();
+    return RoundProfile::serves(domain, surface);
 }
 
 ExactExchange::ExactExchange(const geometry::Domain& domain, const geometry::Surface& surface,
                              const geometry::RayCaster& caster, const std::vector<int>& material,
                              const PatchSizes& sizes) {
-    std::vector<int> order;
-    const std::vector<int> ends = string_ends(domain, surface, order);
-    patches_ = std::make_shared<Patches>(surface, caster, std::move(order), material, ends, sizes);
-    const OpenSky sky(domain, surface);
     direct_.assign(surface.size(), 0.0);
-    tbb::parallel_for(tbb::blocked_range<int>(0, static_cast<int>(size()), 64),
-                      [&](const tbb::blocked_range<int>& range) {
-                          for (int e = range.begin(); e != range.end(); ++e)
-                              if (patches_->patch_of(e) >= 0)
-                                  direct_[e] = std::clamp(sky.cosine_flux(e), 0.0, 1.0);
-                      });
+    const auto cut = [&](std::vector<int> order, const std::vector<int>& ends) {
+        patches_ =
+            std::make_shared<Patches>(surface, caster, std::move(order), material, ends, sizes);
+    };
+    const auto find_direct = [&](const auto& sky) {
+        tbb::parallel_for(tbb::blocked_range<int>(0, static_cast<int>(size()), 32),
+                          [&](const tbb::blocked_range<int>& range) {
+                              for (int e = range.begin(); e != range.end(); ++e)
+                                  if (patches_->patch_of(e) >= 0)
+                                      direct_[e] = std::clamp(sky(e), 0.0, 1.0);
+                          });
+    };
+    if (domain.extruded()) {
+        std::vector<int> order;
+        const std::vector<int> ends = string_ends(domain, surface, order);
+        cut(std::move(order), ends);
+        const OpenSky sky(domain, surface);
+        find_direct([&](int e) { return sky.cosine_flux(e); });
+        exchange_ = string_factors(domain, surface, *patches_).exchange;
+    } else {
+        const RoundProfile profile(domain, surface);
+        cut(profile.order(), {profile.rim()});
+        find_direct([&](int e) { return profile.sky(patches_->place_of(e)); });
+        exchange_ = profile.factors(*patches_);
+    }
     std::vector<double> view(size());
     for (std::size_t e = 0; e < size(); ++e)
         view[e] = 1 - direct_[e];
     patches_->set_view(surface, std::move(view));
-    exchange_ = string_factors(domain, surface, *patches_).exchange;
-    check_closure();
+    close();
 }
 
-/// Factors between patches, and how well everything adds up.
-void ExactExchange::check_closure() {
+/// Factors between patches, how well everything adds up, and what is missing laid on the diagonal:
+/// then zero sticking gives flux 1, and nothing is lost.
+void ExactExchange::close() {
     const Patches& p = *patches_;
     const std::size_t n = p.size(), columns = p.order().size();
     mouth_.resize(n);
     p.average(direct_.data(), mouth_.data());
     coarse_.assign(n * n, 0.0);
-    std::vector<double> column(columns, 0.0);
+    escape_.assign(size(), 0.0);
     for (std::size_t i = 0; i < n; ++i) {
         mouth_[i] *= p.area(i);
-        double sum = mouth_[i];
+        double* row = &exchange_[i * columns];
+        double missing = p.area(i) - mouth_[i];
+        for (std::size_t k = 0; k < columns; ++k)
+            missing -= row[k];
+        closure_defect_ = std::max(closure_defect_, std::fabs(missing) / p.area(i));
+        for (int k = p.first(i); k < p.first(i + 1); ++k)
+            row[k] += missing * p.element_area(p.order()[k]) / p.area(i);
         for (std::size_t j = 0; j < n; ++j)
             for (int k = p.first(j); k < p.first(j + 1); ++k) {
-                const double value = exchange_[i * columns + k];
-                coarse_[i * n + j] += value;
-                column[k] += value;
-                sum += value;
+                coarse_[i * n + j] += row[k];
+                escape_[p.order()[k]] += row[k];
             }
-        closure_defect_ = std::max(closure_defect_, std::fabs(sum / p.area(i) - 1));
     }
-    for (std::size_t k = 0; k < columns; ++k) {
-        const int e = p.order()[k];
-        closure_defect_ =
-            std::max(closure_defect_, std::fabs(column[k] / p.element_area(e) + direct_[e] - 1));
-    }
+    for (const int e : p.order())
+        escape_[e] = 1 - escape_[e] / p.element_area(e);
     for (std::size_t i = 0; i < n; ++i)
         for (std::size_t j = 0; j < i; ++j) {
             double &a = coarse_[i * n + j], &b = coarse_[j * n + i];

@@ -49,6 +49,9 @@ public:
     void apply(int batch, const double* emitted, double* arrival) const override;
     const std::vector<double>& direct(int = -1) const override { return direct_; }
     bool sampled() const override { return false; }
+    /// Share of what an element emits that leaves at once: of extruded elements the same as
+    /// direct(), of revolved ones so only in the mean over a patch.
+    const std::vector<double>& escape() const { return escape_; }
 
     /// Impinging flux per element relative to the open flux, for sticking per element in [0, 1].
     /// `guess` may be empty (warm start otherwise). Relative residual 1e-10; throws NumericsError
@@ -61,21 +64,22 @@ public:
     /// Area times factor between two patches, and of a patch to the open.
     double factor(int i, int j) const { return coarse_[i * patches_->size() + j]; }
     double mouth(int i) const { return mouth_[i]; }
-    /// Largest |sum of factors + factor to the open - 1| over patches and over elements: the open
-    /// is found in another way than the factors.
+    /// Largest |sum of factors + factor to the open - 1| over patches, before what is missing was
+    /// laid on the diagonal: the open is found in another way than the factors.
     double closure_defect() const { return closure_defect_; }
     /// Largest difference of area times factor forth and back between two patches, over the smaller
     /// area.
     double asymmetry() const { return asymmetry_; }
 
 private:
-    void check_closure();
+    void close();
     void gather(const double* emitted, double* mean) const;
     int correct(const std::vector<double>& emits, const std::vector<double>& defect,
                 std::vector<double>& change) const;
 
     std::shared_ptr<Patches> patches_;
     std::vector<double> direct_;   ///< per element
+    std::vector<double> escape_;   ///< per element
     std::vector<double> mouth_;    ///< per patch, a times
     std::vector<double> exchange_; ///< as PatchFactors
     std::vector<double> coarse_;   ///< the same between patches, symmetric

@@ -14,7 +14,7 @@ namespace rille::fluxes {
 /// How long patches are. An element is never cut.
 struct PatchSizes {
     double growth = 0.2;    ///< of the distance to the nearest corner
-    double gap_share = 0.4; ///< of the free path along the normal, at most
+    double gap_share = 0.3; ///< of the free path along the normal, at most
     double turn = 0.2;      ///< [rad] between the ends of a patch, at most
 };
 

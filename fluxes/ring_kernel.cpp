@@ -1,0 +1,170 @@
+// SPDX-License-Identifier: Apache-2.0
+#include "fluxes/ring_kernel.hpp"
+
+#include <algorithm>
+#include <cmath>
+
+namespace rille::fluxes {
+namespace {
+
+constexpr double pi = 3.14159265358979323846;
+
+/// By Newton's method on Legendre's polynomials.
+template <int N>
+GaussRule<N> make_rule() {
+    GaussRule<N> rule{};
+    for (int i = 0; i < N; ++i) {
+        double x = std::cos(pi * (i + 0.75) / (N + 0.5)), slope = 1;
+        for (int round = 0; round < 50; ++round) {
+            double p = 1, before = 0;
+            for (int k = 0; k < N; ++k) {
+                const double next = ((2 * k + 1) * x * p - k * before) / (k + 1);
+                before = p, p = next;
+            }
+            slope = N * (x * p - before) / (x * x - 1);
+            const double step = p / slope;
+            x -= step;
+            if (std::fabs(step) < 1e-16) break;
+        }
+        rule.node[i] = 0.5 * (1 - x);
+        rule.weight[i] = 1 / ((1 - x * x) * slope * slope);
+    }
+    return rule;
+}
+
+/// Keeps of [low, high] where a + b c > 0.
+void keep_positive(double a, double b, CosineRange& range) {
+    if (b > 0)
+        range.low = std::max(range.low, -a / b);
+    else if (b < 0)
+        range.high = std::min(range.high, -a / b);
+    else if (!(a > 0))
+        range.high = -2;
+}
+
+} // namespace
+
+const GaussRule<3>& gauss_3() {
+    static const GaussRule<3> rule = make_rule<3>();
+    return rule;
+}
+const GaussRule<16>& gauss_16() {
+    static const GaussRule<16> rule = make_rule<16>();
+    return rule;
+}
+
+double disc_exchange(double radius_1, double radius_2, double z) {
+    const double a = radius_1 * radius_1, b = radius_2 * radius_2, sum = a + b + z * z;
+    // sum^2 - 4 a b without cancellation where the discs are close and equal.
+    const double apart = (radius_1 - radius_2) * (radius_1 - radius_2) + z * z;
+    const double across = (radius_1 + radius_2) * (radius_1 + radius_2) + z * z;
+    return sum > 0 ? 2 * pi * a * b / (sum + std::sqrt(apart * across)) : 0.0;
+}
+
+double factor_to_disc(const RingPoint& from, double radius, double z) {
+    const double r = from.at.x, b = radius * radius;
+    const double apart = (r - radius) * (r - radius) + z * z;
+    const double across = (r + radius) * (r + radius) + z * z;
+    const double root = std::sqrt(apart * across);
+    // 1 - (r^2 + z^2 - R^2) / root, and (r^2 + z^2 + R^2) / root - 1, times 1 / (2 r^2) for the
+    // axis, by (p - q) = (p^2 - q^2) / (p + q).
+    const double upward = r * r + z * z - b, all = r * r + z * z + b;
+    const double horizontal =
+        upward > 0 ? 2 * b * z * z / (root * (root + upward)) : 0.5 * (1 - upward / root);
+    const double vertical = 2 * r * b * z / (root * (all + root));
+    return from.normal.z * horizontal - from.normal.x * vertical;
+}
+
+CosineRange crossing(const PlanePoint& from, const PlanePoint& to, const PlanePoint& edge_start,
+                     const PlanePoint& edge_end) {
+    constexpr CosineRange nothing{2, -2};
+    const double rise = to.z - from.z, r1 = from.x, r2 = to.x;
+    const double both = 2 * r1 * r2;
+    if (!(both > 0)) return nothing;
+    double t0 = 0, t1 = 1, radius = edge_start.x, slope = 0; // radius of the edge: radius + slope t
+    if (rise != 0) {
+        double u0 = (edge_start.z - from.z) / rise, u1 = (edge_end.z - from.z) / rise;
+        if (u0 == u1) return nothing; // its neighbours bound what it hides
+        slope = (edge_end.x - edge_start.x) / (u1 - u0);
+        radius = edge_start.x - slope * u0;
+        if (u0 > u1) std::swap(u0, u1);
+        t0 = std::max(u0, 0.0), t1 = std::min(u1, 1.0);
+    } else {
+        const bool below = edge_start.z < from.z;
+        if (below == (edge_end.z < from.z)) return nothing;
+        radius = edge_start.x + (from.z - edge_start.z) / (edge_end.z - edge_start.z) *
+                                    (edge_end.x - edge_start.x);
+    }
+    constexpr double fine = 1e-9; // the ends themselves touch their own surfaces
+    t0 = std::max(t0, fine), t1 = std::min(t1, 1 - fine);
+    if (!(t0 < t1)) return nothing;
+    // cosine = (n0 + n1 t + n2 t^2) / (both t (1 - t))
+    const double n0 = radius * radius - r1 * r1, n1 = 2 * (radius * slope + r1 * r1);
+    const double n2 = slope * slope - r1 * r1 - r2 * r2;
+    CosineRange range = nothing;
+    const auto meet = [&](double t) {
+        const double c = (n0 + t * (n1 + t * n2)) / (both * t * (1 - t));
+        range.low = std::min(range.low, c);
+        range.high = std::max(range.high, c);
+    };
+    meet(t0);
+    meet(t1);
+    // Its derivative vanishes where (n1 + n2) t^2 + 2 n0 t - n0 = 0.
+    const double quadratic = n1 + n2, root2 = n0 * n0 + quadratic * n0;
+    if (root2 >= 0) {
+        const double q = -(n0 + std::copysign(std::sqrt(root2), n0));
+        if (quadratic != 0 && q / quadratic > t0 && q / quadratic < t1) meet(q / quadratic);
+        if (q != 0 && -n0 / q > t0 && -n0 / q < t1) meet(-n0 / q);
+    }
+    return range;
+}
+
+double ring_kernel(const RingPoint& from, const RingPoint& to, const std::vector<PlanePoint>& edges,
+                   std::size_t first, std::size_t last, std::vector<CosineRange>& scratch) {
+    const double r1 = from.at.x, r2 = to.at.x, rise = to.at.z - from.at.z;
+    const double a1 = from.normal.z * rise - from.normal.x * r1, b1 = from.normal.x * r2;
+    const double a2 = -to.normal.z * rise - to.normal.x * r2, b2 = to.normal.x * r1;
+    CosineRange range{-1, 1};
+    keep_positive(a1, b1, range);
+    keep_positive(a2, b2, range);
+    if (!(range.low < range.high) || !(r1 * r2 > 0)) return 0.0;
+    scratch.clear();
+    const double below = std::min(from.at.z, to.at.z), above = std::max(from.at.z, to.at.z);
+    for (std::size_t k = first; k + 1 < last; ++k) {
+        const PlanePoint &p = edges[k], &q = edges[k + 1];
+        if (std::max(p.z, q.z) <= below || std::min(p.z, q.z) >= above) continue;
+        const CosineRange hidden = crossing(from.at, to.at, p, q);
+        if (hidden.low >= range.high || hidden.high <= range.low || hidden.low > hidden.high)
+            continue;
+        if (hidden.low <= range.low && hidden.high >= range.high) return 0.0;
+        scratch.push_back(hidden);
+    }
+    std::sort(scratch.begin(), scratch.end(),
+              [](const CosineRange& p, const CosineRange& q) { return p.low < q.low; });
+    const double f = 2 * r1 * r2, e = f + (r1 - r2) * (r1 - r2) + rise * rise;
+    // distance^2 = e - f cos = (e - f) + 2 f sin^2(azimuth / 2): azimuth = 2 peak sinh(v) spreads
+    // the peak of places close to each other evenly over v.
+    const double peak = std::sqrt(std::max((e - f) / (2 * f), 1e-20));
+    const auto window = [&](double low, double high) { // of the cosine
+        const double a = std::asinh(std::acos(std::clamp(high, -1.0, 1.0)) / (2 * peak));
+        const double b = std::asinh(std::acos(std::clamp(low, -1.0, 1.0)) / (2 * peak));
+        double sum = 0;
+        for (int i = 0; i < 16; ++i) {
+            const double v = std::exp(a + (b - a) * gauss_16().node[i]);
+            const double azimuth = peak * (v - 1 / v), half = std::sin(0.5 * azimuth);
+            const double c = 1 - 2 * half * half, d = (e - f) + 2 * f * half * half;
+            sum +=
+                gauss_16().weight[i] * peak * (v + 1 / v) * (a1 + b1 * c) * (a2 + b2 * c) / (d * d);
+        }
+        return sum * (b - a);
+    };
+    double sum = 0, at = range.low;
+    for (const CosineRange& hidden : scratch) {
+        if (hidden.low > at) sum += window(at, std::min(hidden.low, range.high));
+        at = std::max(at, hidden.high);
+    }
+    if (at < range.high) sum += window(at, range.high);
+    return sum / (pi * pi); // twice over 2 pi, and the cosine law's pi
+}
+
+} // namespace rille::fluxes
