@@ -79,8 +79,9 @@ std::string estimate_text(const Case& the_case, const Estimate& e) {
     std::ostringstream text;
     text << "# grid: " << the_case.domain.cells_x;
     if (!the_case.domain.planar_contour()) text << " x " << the_case.domain.cells_y;
-    text << " cells of " << the_case.domain.spacing << " nm across, about " << e.voxels
-         << " voxels and " << e.elements << " surface elements at the end\n"
+    text << " cells of " << the_case.domain.spacing
+         << (the_case.domain.revolved() ? " nm from the axis out, about " : " nm across, about ")
+         << e.voxels << " voxels and " << e.elements << " surface elements at the end\n"
          << "# rays: " << the_case.rays_per_element << " per element and refresh, "
          << the_case.ions_per_species << " reflected ions per species\n"
          << "# memory: about " << std::ceil(e.memory_mb) << " MB at most\n"
