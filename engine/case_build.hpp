@@ -63,8 +63,8 @@ void build_chemistry(const Entry& root, const std::string& folder, Case&, Proble
 /// and the ions through the sheath. A sheath outside what can be computed is a problem.
 void build_arrivals(const Entry& root, Case&, Problems&);
 
-/// Number of cells along x near `asked` spacing [nm] for which a whole number of cells fits into the
-/// width along y as well; 0 if there is none within 20 %.
+/// Number of cells along x near `asked` spacing [nm] for which a whole number of cells fits into
+/// the width along y as well; 0 if there is none within 20 %.
 int common_cells(double width_x, double width_y, double asked);
 
 /// Film of that name with a bounded thickness or not; -1 if there is none.
