@@ -35,10 +35,6 @@ double elements_per_area(const geometry::Domain& domain) {
     return domain.planar_contour() ? 1 / h : 4 / (pi * h * h);
 }
 
-double seconds_of(const Timings& t) {
-    return t.extract + t.cast + t.fluxes + t.advance + t.carry;
-}
-
 } // namespace
 
 Estimate estimate_run(const Case& the_case) {
@@ -55,8 +51,7 @@ Estimate estimate_run(const Case& the_case) {
     const double h = the_case.domain.spacing;
     simulation.step(top_rate > 0 ? 0.1 * h / top_rate : expected.total_s);
     const Timings& end = simulation.timings();
-    const double seconds =
-        seconds_of(end) - seconds_of(start) + end.fluxes - start.fluxes + end.cast - start.cast;
+    const double seconds = end.sum() - start.sum() + end.solves() - start.solves();
 
     const double now = static_cast<double>(simulation.surface().size());
     const double walls = expected.depth_nm - expected.mask_loss_nm;
@@ -84,8 +79,9 @@ std::string estimate_text(const Case& the_case, const Estimate& e) {
     std::ostringstream text;
     text << "# grid: " << the_case.domain.cells_x;
     if (!the_case.domain.planar_contour()) text << " x " << the_case.domain.cells_y;
-    text << " cells of " << the_case.domain.spacing << " nm across, about " << e.voxels
-         << " voxels and " << e.elements << " surface elements at the end\n"
+    text << " cells of " << the_case.domain.spacing
+         << (the_case.domain.revolved() ? " nm from the axis out, about " : " nm across, about ")
+         << e.voxels << " voxels and " << e.elements << " surface elements at the end\n"
          << "# rays: " << the_case.rays_per_element << " per element and refresh, "
          << the_case.ions_per_species << " reflected ions per species\n"
          << "# memory: about " << std::ceil(e.memory_mb) << " MB at most\n"

@@ -137,7 +137,11 @@ void note_health(const Case& the_case, const Expectation& expected, const Simula
     const Timings& t = simulation.timings();
     record.timings = {{"contour", t.extract},
                       {"ray_caster", t.cast},
-                      {"fluxes", t.fluxes},
+                      {"direct_ions", t.direct_ions},
+                      {"reflected_ions", t.reflected_ions},
+                      {"neutrals", t.neutrals},
+                      {"kinetics", t.kinetics},
+                      {"other_fluxes", t.other_fluxes},
                       {"advance", t.advance},
                       {"carry", t.carry}};
     for (const std::string& warning : charging_warnings(the_case, expected))
@@ -333,6 +337,8 @@ RunResult follow_recipe(Course& run) {
     note_health(run.the_case, run.expected, simulation, record);
     record.resumed = run.state.resumed;
     record.wall_seconds = run.wall_seconds();
+    // Frames, pictures of progress, the state that is kept, and what is made once at the start.
+    record.timings.push_back({"all_else", record.wall_seconds - simulation.timings().sum()});
     result.history = std::move(run.state.history);
     result.after = std::move(run.state.after);
     const auto front = std::make_shared<geometry::Front>(simulation.front());

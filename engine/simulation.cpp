@@ -158,7 +158,7 @@ fluxes::SurfaceStep Simulation::solve(const Surface& surface, const geometry::Gr
         caster = std::make_unique<geometry::RayCaster>(case_.domain, surface,
                                                        highest(surface) + 2 * case_.domain.spacing);
     }
-    const Stopwatch watch(timings_.fluxes);
+    const Stopwatch watch(timings_.other_fluxes);
     const std::string& plasma = case_.steps[plasma_step_].plasma;
     fluxes::Sampling sampling;
     sampling.rays_per_element = case_.rays_per_element;
@@ -168,6 +168,12 @@ fluxes::SurfaceStep Simulation::solve(const Surface& surface, const geometry::Gr
     auto solved = fluxes::solve_surface(
         case_.domain, surface, *caster, materials_in_reach(surface, films), case_.mechanism,
         case_.reflection, sources_of(case_, case_.plasmas.at(plasma)), sampling, previous);
+    const auto& part = solved.seconds;
+    timings_.direct_ions += part.direct_ions;
+    timings_.reflected_ions += part.reflected_ions;
+    timings_.neutrals += part.neutrals;
+    timings_.kinetics += part.kinetics;
+    timings_.other_fluxes -= part.direct_ions + part.reflected_ions + part.neutrals + part.kinetics;
     neck_limit_s_ = neck_limit(surface, solved, *caster);
     health_.rays += caster->traced();
     health_.lost_rays += caster->lost();
@@ -300,7 +306,11 @@ Simulation::Trial Simulation::heun(double time_limit) {
                 films.thickness[f] = thickness[f].value;
         }
         const fluxes::SurfaceStep later = solve(predicted.surface, films, &now);
-        const auto there = feet(predicted);
+        std::vector<geometry::BetweenCentres> there;
+        {
+            const Stopwatch watch(timings_.carry);
+            there = feet(predicted);
+        }
         const double change = arrivals_change(case_.domain, surface_, now, later, there);
         // A jump of the arrivals does not shrink with the step.
         if (pace(change, predicted.report.largest_move / longest) && change < 0.7 * before) {
@@ -386,8 +396,11 @@ void Simulation::accept(Trial&& trial, const fluxes::SurfaceStep& step) {
     }
     front_ = std::move(trial.front);
     surface_ = std::move(trial.surface);
-    bases_.follow(front_);
-    bases_.settle(front_, surface_, films_);
+    {
+        const Stopwatch watch(timings_.carry);
+        bases_.follow(front_);
+        bases_.settle(front_, surface_, films_);
+    }
     present_valid_ = false;
     open_field_.advance(dt, recipe().plasma);
     time_s_ += dt;

@@ -21,7 +21,15 @@ namespace rille::engine {
 
 /// Seconds of wall time by phase of the run.
 struct Timings {
-    double extract = 0, cast = 0, fluxes = 0, advance = 0, carry = 0;
+    double extract = 0, cast = 0, advance = 0, carry = 0;
+    double direct_ions = 0, reflected_ions = 0, neutrals = 0, kinetics = 0;
+    double other_fluxes = 0; ///< what they are asked with: materials in reach, sources, necks
+
+    /// Of finding the arrivals and rates on one surface after the other.
+    double solves() const {
+        return cast + direct_ions + reflected_ions + neutrals + kinetics + other_fluxes;
+    }
+    double sum() const { return extract + solves() + advance + carry; }
 };
 
 /// Index in Simulation::removed() of what no cause explains; supplies follow.

@@ -192,9 +192,8 @@ private:
                     sky_ray(surface_, groups_[group].distribution, options_, e, group, b, k);
                 const Vec3 from = -ion.direction;
                 const double facing = from.dot(at.normal);
-                const bool seen = facing > 0
-                                      ? caster_.trace(at.point, from, e).kind == Hit::Kind::open
-                                      : reached_from_behind(at.point, from);
+                const bool seen = facing > 0 ? caster_.opens(at.point, from, e)
+                                             : reached_from_behind(e, at.point, from);
                 if (!seen) continue;
                 if (facing > 0) {
                     flux += share * facing / from.z;
@@ -210,8 +209,8 @@ private:
 
     /// A direction behind the element's own plane matters only for turned normals, next to a convex
     /// edge: an ion from there must get within a cell and a half of the element.
-    bool reached_from_behind(const Vec3& at, const Vec3& from) const {
-        if (domain_.revolved()) return reached_in_round_cell(at, from);
+    bool reached_from_behind(int e, const Vec3& at, const Vec3& from) const {
+        if (domain_.revolved()) return turns_towards(e, from) && reached_in_round_cell(at, from);
         const double path = (caster_.z_open() - at.z) / from.z;
         Vec3 origin = at + from * path, direction = -from;
         fold(origin.x, direction.x, domain_.x_min(), domain_.width_x());
@@ -219,26 +218,45 @@ private:
         const Hit hit = caster_.trace(origin, direction, -1);
         return hit.kind == Hit::Kind::surface && hit.distance > path - 1.5 * domain_.spacing;
     }
-    /// The same where the side is a cylinder: the way from there to the element and, where that
-    /// comes before the open, the reflected rest of the way.
+    /// Whether the contour turns towards a direction within four cells of an element, so that an
+    /// ion from there may get as near.
+    bool turns_towards(int e, const Vec3& from) const {
+        for (const bool back : {false, true}) {
+            double way = 0;
+            for (int f = e; f >= 0 && way < 4 * domain_.spacing;
+                 f = back ? surface_.previous[f] : surface_.next[f]) {
+                if (surface_.normal[f].dot(from) > 0) return true;
+                way += surface_.length(f);
+            }
+        }
+        return false;
+    }
+    /// reached_from_behind where the side is a cylinder: back along the way, with its reflections
+    /// there, to where it comes from the open.
     bool reached_in_round_cell(const Vec3& at, const Vec3& from) const {
-        const double square = from.x * from.x + from.y * from.y, radius = domain_.width_x();
-        const double opens = (caster_.z_open() - at.z) / from.z;
-        const double leaves =
-            square > 0 ? (std::sqrt(std::max(0.0, at.x * at.x * from.x * from.x +
-                                                      square * (radius * radius - at.x * at.x))) -
-                          at.x * from.x) /
-                             square
-                       : opens;
-        const double path = std::min(opens, leaves);
-        const Vec3 start = at + from * path;
-        const Hit hit = caster_.trace(start, -from, -1);
-        if (hit.kind != Hit::Kind::surface || hit.distance < path - 1.5 * domain_.spacing)
-            return false;
-        if (path == opens) return true;
-        const Vec3 outwards = Vec3(start.x, start.y, 0).normalized();
-        const Vec3 onwards = from - outwards * (2 * outwards.dot(from));
-        return caster_.trace(start, onwards, -1).kind == Hit::Kind::open;
+        constexpr int most_reflections = 16; // more: it comes along the horizon
+        const double path = (caster_.z_open() - at.z) / from.z, radius = domain_.width_x();
+        Vec3 start = at, back = from;
+        double left = path;
+        for (int n = 0; n <= most_reflections; ++n) {
+            const double square = back.x * back.x + back.y * back.y;
+            const double along = start.x * back.x + start.y * back.y;
+            const double within = radius * radius - start.x * start.x - start.y * start.y;
+            const double leaves =
+                square > 0
+                    ? (std::sqrt(along * along + square * std::max(0.0, within)) - along) / square
+                    : left;
+            start += back * std::min(left, leaves);
+            if (leaves >= left) {
+                const Hit hit = caster_.trace(start, -back, -1);
+                return hit.kind == Hit::Kind::surface &&
+                       hit.distance > path - 1.5 * domain_.spacing;
+            }
+            left -= leaves;
+            const Vec3 outwards = Vec3(start.x, start.y, 0).normalized();
+            back -= outwards * (2 * outwards.dot(back));
+        }
+        return false;
     }
     void fold(double& at, double& direction, double low, double width) const {
         const double periods = domain_.sides == geometry::Sides::mirror ? 2 * width : width;

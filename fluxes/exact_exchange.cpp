@@ -60,6 +60,10 @@ ExactExchange::ExactExchange(const geometry::Domain& domain, const geometry::Sur
         view[e] = 1 - direct_[e];
     patches_->set_view(surface, std::move(view));
     close();
+    constexpr double bearable = 0.05;
+    if (!(closure_defect_ < bearable))
+        throw NumericsError("what leaves a patch does not arrive: the surface is no profile that "
+                            "exact factors can treat");
 }
 
 /// Factors between patches, how well everything adds up, and what is missing laid on the diagonal:

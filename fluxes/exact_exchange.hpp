@@ -38,7 +38,8 @@ std::vector<int> string_ends(const geometry::Domain&, const geometry::Surface&,
 class ExactExchange : public ExchangeOperator {
 public:
     /// material: per element, or empty; patches end where it changes. The caster only measures
-    /// gaps. Throws NumericsError where the open surface touches or crosses itself.
+    /// gaps. Throws NumericsError where the open surface touches or crosses itself, or
+    /// factors do not add up to within 5 %.
     ExactExchange(const geometry::Domain&, const geometry::Surface&, const geometry::RayCaster&,
                   const std::vector<int>& material, const PatchSizes& sizes = {});
 

@@ -12,7 +12,6 @@ namespace rille::fluxes {
 namespace {
 
 constexpr double pi = 3.14159265358979323846;
-constexpr double steepest = 1e4; ///< slope that stands for 90 deg in the guide
 
 /// Index i with below[i] <= at < below[i + 1], of positive width, and the part below `at` in it.
 struct Drawn {
@@ -25,11 +24,6 @@ Drawn draw_from(const std::vector<double>& below, double u) {
     if (above == below.end()) above = std::lower_bound(below.begin(), below.end(), below.back());
     const std::size_t i = above - below.begin() - 1;
     return {i, std::clamp((at - below[i]) / (below[i + 1] - below[i]), 0.0, 1.0)};
-}
-
-double slope_of(double phi) {
-    return std::clamp(std::fabs(phi) < 0.5 * pi ? std::tan(phi) : std::copysign(steepest, phi),
-                      -steepest, steepest);
 }
 
 /// Ion of one slope in the plane; out of the plane as the node says (to which side does not matter
@@ -60,10 +54,10 @@ ExtrudedStrikes::ExtrudedStrikes(const StrikeScene& scene)
     for (std::size_t s = 0; s < guide_.size(); ++s) {
         const InPlane& plane = tables.in_plane(static_cast<int>(s));
         Guide& guide = guide_[s];
-        guide.table = table_of(plane);
+        guide.table = &tables.plane_table(static_cast<int>(s));
         guide.element.resize(count);
         tbb::parallel_for(0, count,
-                          [&](int e) { guide.element[e] = guide_of(plane, guide.table, e); });
+                          [&](int e) { guide.element[e] = guide_of(plane, *guide.table, e); });
         guide.below.assign(1, 0.0);
         for (int e = 0; e < count; ++e) {
             const auto& below = guide.element[e].below;
@@ -72,55 +66,6 @@ ExtrudedStrikes::ExtrudedStrikes(const StrikeScene& scene)
                                   tables.ions()[s].flux * scene.surface.area[e] * own);
         }
     }
-}
-
-ExtrudedStrikes::PlaneTable ExtrudedStrikes::table_of(const InPlane& plane) {
-    PlaneTable table;
-    for (const double angle : plane.angle) {
-        table.slope.push_back(slope_of(angle));
-        table.sine.push_back(std::sin(angle));
-    }
-    table.share.assign(plane.angle.size() - 1, 0.0);
-    table.first_node.assign(plane.angle.size(), 0);
-    for (const InPlane::Node& node : plane.nodes) {
-        table.share[node.bin] += node.weight;
-        ++table.first_node[node.bin + 1];
-        table.least_cosine = std::min(table.least_cosine, node.cos_polar);
-    }
-    for (std::size_t b = 1; b < table.first_node.size(); ++b)
-        table.first_node[b] += table.first_node[b - 1];
-    table.first_group.push_back(0);
-    for (int b = 0; b + 1 < static_cast<int>(plane.angle.size()); ++b)
-        add_groups(table, plane, b);
-    return table;
-}
-
-/// Each node by itself where they are few, else an eighth of the cosines of the bin each.
-void ExtrudedStrikes::add_groups(PlaneTable& table, const InPlane& plane, int bin) {
-    constexpr int few = 16, many = 8;
-    const auto begin = plane.nodes.begin() + table.first_node[bin];
-    const auto end = plane.nodes.begin() + table.first_node[bin + 1];
-    double sum = 0, low = 1, high = 0;
-    for (auto node = begin; node != end; ++node) {
-        table.below.push_back(sum += node->weight);
-        low = std::min(low, node->cos_polar);
-        high = std::max(high, node->cos_polar);
-    }
-    if (end - begin <= few) {
-        for (auto node = begin; node != end; ++node)
-            table.groups.push_back({node->weight, node->cos_polar});
-    } else {
-        std::array<Group, many> groups;
-        const double scale = high > low ? many / (high - low) : 0;
-        for (auto node = begin; node != end; ++node) {
-            const int which = static_cast<int>((node->cos_polar - low) * scale);
-            Group& group = groups[std::min(which, many - 1)];
-            group.weight += node->weight;
-            group.least_cosine = std::min(group.least_cosine, node->cos_polar);
-        }
-        table.groups.insert(table.groups.end(), groups.begin(), groups.end());
-    }
-    table.first_group.push_back(static_cast<int>(table.groups.size()));
 }
 
 /// What any place of the element may see: along a segment both horizons turn one way.
@@ -176,7 +121,7 @@ Strike ExtrudedStrikes::draw(int ion, int, const ScrambledPoints& points, std::u
     const auto p0 = points.pair(index, 0), p1 = points.pair(index, 1), p2 = points.pair(index, 2);
     const Drawn place = draw_from(guide_[ion].below, p0[0]);
     const int e = static_cast<int>(place.index);
-    const PlaneTable& table = guide_[ion].table;
+    const PlaneTable& table = *guide_[ion].table;
     const Bins& bins = guide_[ion].element[e];
     const Drawn drawn = draw_from(bins.below, p1[0]);
     const int b = bins.low.bin + static_cast<int>(drawn.index);
@@ -184,9 +129,9 @@ Strike ExtrudedStrikes::draw(int ion, int, const ScrambledPoints& points, std::u
     const double sine = table.sine[b] + (table.sine[b + 1] - table.sine[b]) *
                                             (bins.from(b) + bins.width(b) * drawn.part);
     const double phi = std::asin(std::clamp(sine, -1.0, 1.0));
-    const double slope =
-        std::min(std::fabs(sine) / std::sqrt(std::max(1e-16, 1 - sine * sine)), steepest) *
-        (sine < 0 ? -1 : 1);
+    const double slope = std::min(std::fabs(sine) / std::sqrt(std::max(1e-16, 1 - sine * sine)),
+                                  PlaneTable::steepest) *
+                         (sine < 0 ? -1 : 1);
     const Vec3& normal = scene_.surface.normal[e];
     const double received = normal.z + slope * normal.x;
     if (received <= 0) return {};

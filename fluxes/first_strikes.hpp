@@ -4,6 +4,7 @@
 #include "fluxes/direct_ions.hpp"
 #include "fluxes/exchange.hpp"
 #include "fluxes/open_sky.hpp"
+#include "fluxes/plane_table.hpp"
 #include "fluxes/sampling.hpp"
 #include "geometry/domain.hpp"
 #include "geometry/surface.hpp"
@@ -69,19 +70,6 @@ public:
                 int count) const;
 
 private:
-    /// What depends on the distribution alone: per edge of the bins slope and sine of the angle,
-    /// per bin the flux in it, its nodes [first_node[b], first_node[b + 1]) and, for the guide,
-    /// groups of nodes of about one polar angle.
-    struct Group {
-        double weight = 0, least_cosine = 1;
-    };
-    struct PlaneTable {
-        std::vector<double> slope, sine, share;
-        std::vector<int> first_node, first_group;
-        std::vector<Group> groups;
-        std::vector<double> below; ///< running sum of the weights of the nodes inside their bin
-        double least_cosine = 1;   ///< of the polar angles
-    };
     struct Bins { ///< in-plane bins that an element may receive ions from
         InPlane::Place low, high;
         std::vector<double> below; ///< running sums of the guide, one more than bins
@@ -89,12 +77,10 @@ private:
         double width(int b) const { return (b == high.bin ? high.part : 1.0) - from(b); }
     };
     struct Guide {
-        PlaneTable table;
+        const PlaneTable* table = nullptr; ///< of the ion tables
         std::vector<Bins> element;
         std::vector<double> below; ///< running sums over elements, one more than elements
     };
-    static PlaneTable table_of(const InPlane&);
-    static void add_groups(PlaneTable&, const InPlane&, int bin);
     Visible sky_over(int element) const;
     Bins guide_of(const InPlane&, const PlaneTable&, int element) const;
 

@@ -119,6 +119,8 @@ IonTables::IonTables(geometry::Symmetry symmetry, std::vector<IonSource> ions,
       content_(content_of(symmetry, ions_, tallies_)) {
     place_angles(symmetry);
     if (symmetry != geometry::Symmetry::extruded) return;
+    for (int s = 0; s < static_cast<int>(ions_.size()); ++s)
+        plane_.push_back(fluxes::plane_table(in_plane(s)));
     for (const Tally& tally : tallies_)
         table_.push_back(tabulate(tally));
     for (int s = 0; s < static_cast<int>(ions_.size()); ++s)

@@ -4,6 +4,7 @@
 #include "fluxes/in_plane.hpp"
 #include "fluxes/ions.hpp"
 #include "fluxes/mechanism.hpp"
+#include "fluxes/plane_table.hpp"
 #include "geometry/domain.hpp"
 
 #include <vector>
@@ -36,6 +37,7 @@ public:
     /// row[k] += factor * T_m(angles()[k], place). extruded only.
     void add(int tally, const InPlane::Place&, double factor, double* row) const;
     const InPlane& in_plane(int ion) const { return ions_[ion].distribution.in_plane(); }
+    const PlaneTable& plane_table(int ion) const { return plane_[ion]; } ///< extruded only
 
 private:
     void place_angles(geometry::Symmetry);
@@ -45,6 +47,7 @@ private:
     std::vector<Tally> tallies_;
     std::vector<double> angles_;
     std::vector<double> content_;            ///< everything that the tables follow from
+    std::vector<PlaneTable> plane_;          ///< per ion species
     std::vector<std::vector<double>> table_; ///< [tally][edge * angles + k]
 };
 

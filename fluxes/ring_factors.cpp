@@ -72,9 +72,21 @@ RoundProfile::RoundProfile(const geometry::Domain& domain, const geometry::Surfa
     rim_ = static_cast<int>(point_.size()) - 1;
     while (rim_ > 0 && point_[rim_ - 1].z >= top_ - 0.05 * domain.spacing)
         --rim_;
-    rising_ = true;
-    for (std::size_t k = 1; k < point_.size(); ++k)
-        rising_ = rising_ && point_[k].z >= point_[k - 1].z - tolerance_;
+    // From its lowest vertex on, does the profile only rise, and does it only fall before?
+    for (int k = 0; k <= rim_; ++k)
+        if (point_[k].z < point_[bottom_].z - tolerance_) bottom_ = k;
+    bore_ = rising_ = true;
+    for (int k = 1; k <= rim_; ++k) {
+        const double step = point_[k].z - point_[k - 1].z;
+        bore_ = bore_ && (k <= bottom_ ? step <= tolerance_ : step >= -tolerance_);
+    }
+    rising_ = bore_ && bottom_ == 0;
+}
+
+BetweenRings RoundProfile::what_stands_between() const {
+    const auto rim = static_cast<std::size_t>(rim_), bottom = static_cast<std::size_t>(bottom_);
+    if (bore_) return {&point_, 0, bottom, bottom, rim + 1, {}};
+    return {&point_, 0, rim, 0, 0, {}};
 }
 
 /// Whether no edge that faces away from the axis, solid within, reaches into these heights.
@@ -158,15 +170,17 @@ double RoundProfile::by_horizons(const RingPoint& from, int place) const {
 }
 
 /// The same for any profile, over the disc that the rim spans.
-double RoundProfile::by_windows(const RingPoint& from) const {
+double RoundProfile::by_windows(const RingPoint& from, int place) const {
     const PlanePoint rim = point_[rim_];
     std::vector<CosineRange> scratch;
+    BetweenRings between = what_stands_between();
+    between.own[0] = {std::size_t(place), std::size_t(place + 1)};
+    between.first_bore = std::max(between.first_bore, std::size_t(place + 1));
     double sum = 0;
     for (int g = 0; g < 48; ++g) {
         const double s = (gauss_16().node[g % 16] + g / 16) / 3;
         const RingPoint to{{rim.x * s, rim.z}, {0, -1}};
-        sum +=
-            gauss_16().weight[g % 16] / 3 * s * ring_kernel(from, to, point_, 0, rim_ + 1, scratch);
+        sum += gauss_16().weight[g % 16] / 3 * s * ring_kernel(from, to, between, scratch);
     }
     return sum * 2 * 3.14159265358979323846 * rim.x * rim.x;
 }
@@ -194,7 +208,7 @@ double RoundProfile::sky(int place) const {
         else if (clear && is_open_disc(place) && is_open_disc(place + 1))
             return by_discs(place);
         else
-            flux += w * (rising_ ? by_horizons(from, place) : by_windows(from));
+            flux += w * (rising_ ? by_horizons(from, place) : by_windows(from, place));
     }
     return weight > 0 ? std::clamp(flux / weight, 0.0, 1.0) : 1.0;
 }
@@ -207,11 +221,16 @@ double RoundProfile::by_azimuths(const Patches& patches, int i, int j) const {
     };
     const Chord from{point_[corner(i)], point_[corner(i + 1)]};
     const Chord to{point_[corner(j)], point_[corner(j + 1)]};
-    Between between{0, point_.size(), {}};
-    if (rising_)
-        between = {std::size_t(std::min(corner(i + 1), corner(j + 1))),
-                   std::size_t(std::max(corner(i), corner(j)) + 1),
-                   {}};
+    Between between{what_stands_between(), {}};
+    const int low = std::min(i, j), high = std::max(i, j);
+    for (const int side : {0, 1}) {
+        const int p = side == 0 ? i : j;
+        between.rings.own[side] = {std::size_t(corner(p)), std::size_t(corner(p + 1))};
+    }
+    if (corner(low) >= bottom_ && bore_) {
+        between.rings.first_bore = corner(low + 1);
+        between.rings.last_bore = corner(high) + 1;
+    }
     const double both = from.measure() * to.measure();
     return both > 0 ? integrate(from, to, 0, between) / both * patches.area(i) * patches.area(j)
                     : 0.0;
@@ -242,7 +261,7 @@ double RoundProfile::integrate(const Chord& from, const Chord& to, int halvings,
         for (int n = 0; n < 3; ++n) {
             const RingPoint q{to.at(gauss_3().node[n]), n2};
             sum += gauss_3().weight[m] * gauss_3().weight[n] * p.at.x * q.at.x *
-                   ring_kernel(p, q, point_, between.first, between.last, between.scratch);
+                   ring_kernel(p, q, between.rings, between.scratch);
         }
     }
     return sum * l1 * l2;

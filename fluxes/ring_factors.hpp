@@ -52,13 +52,14 @@ private:
             return 0.5 * (start.x + end.x) * std::sqrt(x * x + z * z);
         }
     };
-    struct Between { ///< vertices that can stand between
-        std::size_t first, last;
+    struct Between {
+        BetweenRings rings;
         std::vector<CosineRange> scratch;
     };
+    BetweenRings what_stands_between() const;
     double by_discs(int place) const;
     double by_horizons(const RingPoint& from, int place) const;
-    double by_windows(const RingPoint& from) const;
+    double by_windows(const RingPoint& from, int place) const;
     double by_azimuths(const Patches&, int i, int j) const;
     double integrate(const Chord& from, const Chord& to, int halvings, Between&) const;
     RingPoint on_chord(int first, int last, double part) const;
@@ -69,7 +70,9 @@ private:
     double tolerance_ = 0;          ///< heights this close count as one [nm]
     double top_ = 0;                ///< height of the highest vertex
     int rim_ = 0;                   ///< first vertex as high as that
-    bool rising_ = false;           ///< whether the profile never goes down on its way
+    int bottom_ = 0;                ///< the lowest vertex, or one as low nearer to the axis
+    bool bore_ = false;             ///< whether it only falls before that and only rises after
+    bool rising_ = false;           ///< whether it only rises
 };
 
 } // namespace rille::fluxes

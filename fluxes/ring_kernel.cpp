@@ -42,6 +42,21 @@ void keep_positive(double a, double b, CosineRange& range) {
         range.high = -2;
 }
 
+/// Highest cosine at which the line stays inside all bore vertices between.
+double highest_cosine(const PlanePoint& from, const PlanePoint& to, const BetweenRings& between) {
+    const double rise = to.z - from.z;
+    if (rise == 0) return 1.0;
+    const double per_rise = 1 / rise, a = from.x * from.x, b = to.x * to.x;
+    double least = 2 * from.x * to.x;
+    for (std::size_t k = between.first_bore; k < between.last_bore; ++k) {
+        const PlanePoint& p = (*between.point)[k];
+        const double t = (p.z - from.z) * per_rise, rest = 1 - t;
+        if (t > 1e-9 && rest > 1e-9)
+            least = std::min(least, (p.x * p.x - rest * rest * a - t * t * b) / (t * rest));
+    }
+    return least / (2 * from.x * to.x);
+}
+
 } // namespace
 
 const GaussRule<3>& gauss_3() {
@@ -119,8 +134,8 @@ CosineRange crossing(const PlanePoint& from, const PlanePoint& to, const PlanePo
     return range;
 }
 
-double ring_kernel(const RingPoint& from, const RingPoint& to, const std::vector<PlanePoint>& edges,
-                   std::size_t first, std::size_t last, std::vector<CosineRange>& scratch) {
+double ring_kernel(const RingPoint& from, const RingPoint& to, const BetweenRings& between,
+                   std::vector<CosineRange>& scratch) {
     const double r1 = from.at.x, r2 = to.at.x, rise = to.at.z - from.at.z;
     const double a1 = from.normal.z * rise - from.normal.x * r1, b1 = from.normal.x * r2;
     const double a2 = -to.normal.z * rise - to.normal.x * r2, b2 = to.normal.x * r1;
@@ -128,10 +143,13 @@ double ring_kernel(const RingPoint& from, const RingPoint& to, const std::vector
     keep_positive(a1, b1, range);
     keep_positive(a2, b2, range);
     if (!(range.low < range.high) || !(r1 * r2 > 0)) return 0.0;
+    range.high = std::min(range.high, highest_cosine(from.at, to.at, between));
+    if (!(range.low < range.high)) return 0.0;
     scratch.clear();
     const double below = std::min(from.at.z, to.at.z), above = std::max(from.at.z, to.at.z);
-    for (std::size_t k = first; k + 1 < last; ++k) {
-        const PlanePoint &p = edges[k], &q = edges[k + 1];
+    for (std::size_t k = between.first_edge; k < between.last_edge; ++k) {
+        if (between.is_own(k)) continue;
+        const PlanePoint &p = (*between.point)[k], &q = (*between.point)[k + 1];
         if (std::max(p.z, q.z) <= below || std::min(p.z, q.z) >= above) continue;
         const CosineRange hidden = crossing(from.at, to.at, p, q);
         if (hidden.low >= range.high || hidden.high <= range.low || hidden.low > hidden.high)

@@ -36,12 +36,24 @@ double factor_to_disc(const RingPoint&, double radius, double z);
 CosineRange crossing(const PlanePoint& from, const PlanePoint& to, const PlanePoint& edge_start,
                      const PlanePoint& edge_end);
 
+/// What can stand between two rings. Of solid that reaches outwards without end the vertices
+/// suffice: the line's distance from the axis is convex along it, the solid's edge straight.
+struct BetweenRings {
+    const std::vector<PlanePoint>* point = nullptr;
+    std::size_t first_edge = 0, last_edge = 0; ///< edges k -> k + 1, solid on one side, any kind
+    std::size_t first_bore = 0, last_bore = 0; ///< vertices with solid outside them
+    /// Edges that belong to the rings themselves, first and last: facing says what they hide.
+    std::array<std::array<std::size_t, 2>, 2> own{};
+    bool is_own(std::size_t edge) const {
+        return (edge >= own[0][0] && edge < own[0][1]) || (edge >= own[1][0] && edge < own[1][1]);
+    }
+};
+
 /// Integral over the azimuth, both ways round, of cos cos / (pi distance^2) between two rings where
-/// they face and no edge is crossed: per area of `to`, the factor from `from`, divided by the
-/// azimuth's 2 pi. 16 Gauss points a window. `edges`: consecutive vertices [first, last) that
-/// can stand between.
-double ring_kernel(const RingPoint& from, const RingPoint& to, const std::vector<PlanePoint>& edges,
-                   std::size_t first, std::size_t last, std::vector<CosineRange>& scratch);
+/// they face and nothing stands between: per area of `to`, the factor from `from`, divided by the
+/// azimuth's 2 pi. 16 Gauss points a window.
+double ring_kernel(const RingPoint& from, const RingPoint& to, const BetweenRings&,
+                   std::vector<CosineRange>& scratch);
 
 /// Nodes and weights on [0, 1].
 template <int N>

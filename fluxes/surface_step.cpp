@@ -12,6 +12,7 @@
 #include <tbb/parallel_for.h>
 
 #include <algorithm>
+#include <chrono>
 #include <optional>
 
 namespace rille::fluxes {
@@ -72,6 +73,28 @@ bool reflects(const std::vector<IonReflection>& laws) {
                        [](const IonReflection& law) { return law.probability > 0; });
 }
 
+/// Wall time by part; one part goes on until the next begins.
+class PartClock {
+public:
+    using Part = double SurfaceStep::Seconds::*;
+    void begin(Part part) {
+        const auto now = std::chrono::steady_clock::now();
+        if (part_) seconds_.*part_ += std::chrono::duration<double>(now - start_).count();
+        part_ = part;
+        start_ = now;
+    }
+    /// Ends the last part.
+    SurfaceStep::Seconds stop() {
+        begin(nullptr);
+        return seconds_;
+    }
+
+private:
+    SurfaceStep::Seconds seconds_;
+    Part part_ = nullptr;
+    std::chrono::steady_clock::time_point start_;
+};
+
 struct Setting {
     const geometry::Domain& domain;
     const geometry::Surface& surface;
@@ -80,6 +103,7 @@ struct Setting {
     const Mechanism& mechanism;
     const Sources& sources;
     const Sampling& sampling;
+    mutable PartClock clock{};
 
     int outermost(int e) const { return reach.material[reach.first[e]]; }
     SurfaceResponse respond_at(int material, const double* tallies, const double* neutrals) const {
@@ -119,6 +143,7 @@ void add_up(const ReflectedIons& bounced, std::size_t elements, int e, IonArriva
 
 IonArrivals gather_ions(const Setting& s, const std::vector<IonReflection>& reflection,
                         const SurfaceStep* previous) {
+    s.clock.begin(&SurfaceStep::Seconds::direct_ions);
     IonArrivals ions;
     const std::size_t n = s.surface.size(), m = s.mechanism.tallies.size();
     ions.tallies = static_cast<int>(m);
@@ -143,6 +168,7 @@ IonArrivals gather_ions(const Setting& s, const std::vector<IonReflection>& refl
         DirectIons::Options{sampling.ion_directions, sampling.seed, sampling.refresh});
     ReflectedIons bounced;
     if (sampling.ions_per_species > 0 && m > 0 && reflects(reflection)) {
+        s.clock.begin(&SurfaceStep::Seconds::reflected_ions);
         std::vector<int> material(n);
         for (std::size_t e = 0; e < n; ++e)
             material[e] = s.outermost(int(e));
@@ -178,6 +204,7 @@ std::unique_ptr<ExchangeOperator> exchange_of(const Setting& s) {
 /// Neutrals solved together with the sticking that the kinetics of the outermost material gives.
 CoupledArrivals gather_neutrals(const Setting& s, const IonArrivals& ions,
                                 const SurfaceStep* previous) {
+    s.clock.begin(&SurfaceStep::Seconds::neutrals);
     CoupledArrivals none;
     none.batch_flux.resize(batches);
     if (s.sources.neutrals.empty()) return none;
@@ -288,6 +315,7 @@ SurfaceStep solve_surface(const geometry::Domain& domain, const geometry::Surfac
     IonArrivals ions = gather_ions(setting, reflection, previous);
     CoupledArrivals neutrals = gather_neutrals(setting, ions, previous);
 
+    setting.clock.begin(&SurfaceStep::Seconds::kinetics);
     SurfaceStep step;
     step.ion_tables = ions.tables;
     step.neutral = std::move(neutrals.flux);
@@ -313,6 +341,7 @@ SurfaceStep solve_surface(const geometry::Domain& domain, const geometry::Surfac
         detail->neutral_batch = std::move(neutrals.batch_flux);
         step.detail = std::move(detail);
     }
+    step.seconds = setting.clock.stop();
     return step;
 }
 

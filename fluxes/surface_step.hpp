@@ -75,6 +75,11 @@ struct SurfaceStep {
     std::shared_ptr<const IonTables> ion_tables;
     int iterations = 0;  ///< of transport and kinetics against each other
     double residual = 0; ///< largest change of a sticking probability in the last one
+    /// Wall time [s] of the solve, part by part; `kinetics` also tabulates the rates.
+    struct Seconds {
+        double direct_ions = 0, reflected_ions = 0, neutrals = 0, kinetics = 0;
+    };
+    Seconds seconds;
 };
 
 /// Transport and kinetics iterated to convergence of every sticking probability (1e-6), throws

@@ -50,7 +50,8 @@ struct FrustumCaster::Ray {
 };
 
 FrustumCaster::FrustumCaster(const Domain& domain, const Surface& surface, double z_open)
-    : radius_(domain.width_x()), z_open_(z_open), slack_(1e-9 * domain.spacing), z_top_(-infinity) {
+    : radius_(domain.width_x()), z_open_(z_open), slack_(1e-9 * domain.spacing), z_top_(-infinity),
+      rims_(surface, radius_) {
     RILLE_CHECK(surface.size() > 0, "empty surface");
     const int size = static_cast<int>(surface.size());
     const auto squared = [&](double r) { return r >= radius_ * (1 - 1e-12) ? infinity : r * r; };
@@ -211,6 +212,13 @@ void turn_into_plane(Hit& hit) {
 }
 
 } // namespace
+
+bool FrustumCaster::opens(const Vec3& o, const Vec3& d, int from) const {
+    if (!(from >= 0 && d.z > 0 && rims_.serves(from)))
+        return trace(o, d, from).kind == Hit::Kind::open;
+    const Ray ray(o, d);
+    return rims_.passes(from, ray.a, ray.b, ray.c, ray.oz, ray.inverse_z);
+}
 
 Hit FrustumCaster::trace(const Vec3& origin, const Vec3& direction, int from) const {
     Hit hit;

@@ -1,6 +1,7 @@
 // SPDX-License-Identifier: Apache-2.0
 #pragma once
 
+#include "geometry/bore_rims.hpp"
 #include "geometry/domain.hpp"
 #include "geometry/ray_caster.hpp"
 #include "geometry/surface.hpp"
@@ -33,6 +34,9 @@ public:
     /// direction with it.
     Hit trace(const Vec3& origin, const Vec3& direction, int from_element) const;
 
+    /// As RayCaster::opens.
+    bool opens(const Vec3& origin, const Vec3& direction, int from_element) const;
+
 private:
     struct Ray;
     struct Frustum {
@@ -57,6 +61,7 @@ private:
 
     double radius_, z_open_, slack_;
     double z_top_; ///< of the surface
+    BoreRims rims_;
     std::vector<Frustum> frusta_;
     std::vector<std::array<int, 2>> convex_;  ///< elements that meet it in an outer edge, or -1
     std::vector<std::array<int, 2>> concave_; ///< in an inner one; on the axis itself

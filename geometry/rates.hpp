@@ -11,10 +11,10 @@ namespace rille::geometry {
 /// arrivals, for every material in reach of the step. Positive = etching (the solid recedes),
 /// negative = growth; nm/s.
 ///
-/// The normal enters through one angle. extruded and revolved: psi = atan2(n.x, n.z) in [-pi, pi]. full: the
-/// angle between n and +z in [0, pi], n turned in the vertical plane of the element's own normal.
-/// `angles` is shared by all tables, strictly increasing, covers the whole interval, and is dense
-/// where the rates bend (near walls under a narrow beam). Between angles rates are linear.
+/// The normal enters through one angle. extruded and revolved: psi = atan2(n.x, n.z) in [-pi, pi].
+/// full: the angle between n and +z in [0, pi], n turned in the vertical plane of the element's own
+/// normal. `angles` is shared by all tables, strictly increasing, covers the whole interval, and is
+/// dense where the rates bend (near walls under a narrow beam). Between angles rates are linear.
 struct NormalRates {
     std::vector<double> angles; ///< [rad]
     std::vector<int> first_row; ///< size elements + 1: rows [first_row[e], first_row[e + 1])

@@ -69,6 +69,12 @@ Hit RayCaster::trace(const Vec3& origin, const Vec3& direction, int from_element
     return hit;
 }
 
+bool RayCaster::opens(const Vec3& origin, const Vec3& direction, int from_element) const {
+    if (!impl_->frusta) return trace(origin, direction, from_element).kind == Hit::Kind::open;
+    Counts::add(1, impl_->counts.local().traced);
+    return impl_->frusta->opens(origin, direction, from_element);
+}
+
 void RayCaster::trace(const RayStart* rays, std::size_t count, Hit* hits) const {
     if (impl_->segments)
         impl_->segments->trace(rays, count, hits);

@@ -48,6 +48,9 @@ public:
     Hit trace(const Vec3& origin, const Vec3& direction, int from_element) const;
     /// The same for `count` rays at once, bit for bit; quicker in extruded.
     void trace(const RayStart* rays, std::size_t count, Hit* hits) const;
+    /// Whether the ray ends in the open: as trace, but for round-off; quicker from the walls of a
+    /// revolved hole.
+    bool opens(const Vec3& origin, const Vec3& direction, int from_element) const;
     double z_open() const;
     /// Rays traced and rays lost so far.
     std::uint64_t traced() const;

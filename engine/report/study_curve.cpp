@@ -11,7 +11,7 @@
 namespace rille::engine {
 namespace {
 
-constexpr std::size_t most_slices = 12, most_lines = 16, most_markers = 1500;
+constexpr std::size_t most_slices = 12, most_lines = 16, most_groups = 8, most_markers = 1500;
 
 class CurveMaker {
 public:
@@ -22,14 +22,16 @@ public:
         LineChart chart;
         const std::string title = view_.y_title() + " against " + x_.title;
         chart.text = view_.figure_text(id, slice.name.empty() ? title : title + ", " + slice.name);
-        if (view_.line)
+        // In a plan that is no grid hardly two points share a value: then there are no lines.
+        by_line_ = view_.line && (joined_ || view_.axes[*view_.line].labels.size() <= most_groups);
+        if (by_line_)
             chart.text.subtitle += " · one line for each " + view_.axes[*view_.line].title;
         chart.x = x_.chart_axis();
         chart.y.title = view_.y_title();
         chart.y.unit = view_.y_unit();
         std::map<std::size_t, std::vector<std::size_t>> lines;
         for (const std::size_t row : slice.rows)
-            lines[view_.line ? view_.axes[*view_.line].level[row] : 0].push_back(row);
+            lines[by_line_ ? view_.axes[*view_.line].level[row] : 0].push_back(row);
         const std::size_t every = (lines.size() + most_lines - 1) / most_lines;
 
         stride_ = std::max<std::size_t>(1, slice.rows.size() / most_markers);
@@ -62,7 +64,7 @@ private:
             any_open_ = any_open_ || view_.is_open(row);
             any_error_ = any_error_ || view_.error(row, *view_.y) > 0;
         }
-        const std::string name = view_.line ? view_.axes[*view_.line].value_text(level) : "";
+        const std::string name = by_line_ ? view_.axes[*view_.line].value_text(level) : "";
         ChartLine line;
         line.name = name;
         line.look = look;
@@ -133,7 +135,7 @@ private:
     const StudyView& view_;
     const MeasuredRows& measured_;
     const StudyAxis& x_;
-    bool joined_;
+    bool joined_, by_line_ = false;
     std::size_t look_ = 0, stride_ = 1;
     bool any_open_ = false, any_error_ = false, any_repeats_ = false, any_measured_ = false;
 };

@@ -210,11 +210,12 @@ std::vector<std::pair<std::string, ProfileRow>> profile_rows(const StudyView& vi
     std::vector<std::size_t> shown{*view.x};
     if (view.line) shown.push_back(*view.line);
     std::vector<StudySlice> slices = study_slices(view, shown, most_slices);
-    if (slices.empty()) slices = {whole_study(view)};
+    const bool is_grid = !slices.empty(), by_line = view.line && is_grid;
+    if (!is_grid) slices = {whole_study(view)};
     for (const StudySlice& slice : slices) {
         std::map<std::size_t, std::map<std::size_t, std::size_t>> lines; // line, x level: first row
         for (const std::size_t row : slice.rows)
-            lines[view.line ? view.axes[*view.line].level[row] : 0].emplace(x.level[row], row);
+            lines[by_line ? view.axes[*view.line].level[row] : 0].emplace(x.level[row], row);
         for (const auto& [level, points] : lines) {
             if (rows.size() >= most_rows) return rows;
             std::vector<std::size_t> along;
@@ -222,7 +223,7 @@ std::vector<std::pair<std::string, ProfileRow>> profile_rows(const StudyView& vi
                 along.push_back(row);
             ProfileRow row;
             std::string name = slice.name;
-            if (view.line)
+            if (by_line)
                 name = view.axes[*view.line].title + " " + view.axes[*view.line].value_text(level) +
                        (name.empty() ? "" : ", " + name);
             const std::string id =
@@ -231,6 +232,8 @@ std::vector<std::pair<std::string, ProfileRow>> profile_rows(const StudyView& vi
             row.axis_title = "along " + x.title + (x.unit.empty() ? "" : " (" + x.unit + ")");
             for (const std::size_t i : some_of(along.size(), most_panels))
                 row.panels.push_back(panel_of(view, shelf, along[i]));
+            if (!is_grid)
+                row.text.notes.emplace_back("The other inputs differ from point to point.");
             if (along.size() > most_panels)
                 row.text.notes.push_back(std::to_string(most_panels) + " of " +
                                          std::to_string(along.size()) + " points are shown.");

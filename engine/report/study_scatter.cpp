@@ -2,8 +2,10 @@
 // Plans whose points do not line up: a metric against each axis on its own.
 #include "engine/report/study_figures.hpp"
 #include "engine/report/study_parts.hpp"
+#include "engine/study/study_names.hpp"
 
 #include <algorithm>
+#include <filesystem>
 #include <fmt/format.h>
 
 namespace rille::engine {
@@ -99,10 +101,14 @@ PageSection scatter_section(const StudyParts& p) {
                                "<div class=\"charts\">\n" + html + "</div>\n");
     }
     if (parts.empty()) return section;
-    section.html = "<p>The points of this plan do not line up, so no curve joins them: each chart "
-                   "shows all of them against one input. What an input does on its own stands "
-                   "under <a href=\"#effects\">What matters most</a>.</p>\n" +
-                   choice_html("scatter-choice", "Shown for", parts);
+    const bool has_effects = std::filesystem::exists(std::filesystem::path(p.view.table.folder) /
+                                                     study_names::effects_json);
+    section.html = std::string("<p>The points of this plan do not line up, so no curve joins them: "
+                               "each chart shows all of them against one input.") +
+                   (has_effects ? " What an input does on its own stands under <a "
+                                  "href=\"#effects\">What matters most</a>."
+                                : "") +
+                   "</p>\n" + choice_html("scatter-choice", "Shown for", parts);
     return section;
 }
 

@@ -12,11 +12,10 @@ namespace {
 using Role = StudyTableColumn::Role;
 
 constexpr std::pair<Role, const char*> role_words[] = {
-    {Role::point, "point"},     {Role::status, "status"},     {Role::input, "input"},
-    {Role::metric, "metric"},   {Role::error, "error"},       {Role::grid_error, "grid_error"},
-    {Role::grid_bound, "grid_bound"},
-    {Role::target, "target"},   {Role::standing, "standing"}, {Role::warnings, "warnings"},
-    {Role::failure, "failure"}, {Role::seconds, "seconds"}};
+    {Role::point, "point"},           {Role::status, "status"},   {Role::input, "input"},
+    {Role::metric, "metric"},         {Role::error, "error"},     {Role::grid_error, "grid_error"},
+    {Role::grid_bound, "grid_bound"}, {Role::target, "target"},   {Role::standing, "standing"},
+    {Role::warnings, "warnings"},     {Role::failure, "failure"}, {Role::seconds, "seconds"}};
 
 /// Names of columns hold no dots and no spaces.
 std::string name_part(const std::string& text) {

@@ -158,7 +158,8 @@ TEST_CASE("exact exchange: round factors and the mouth add up", "[exact][revolve
                                     : c.name == "hooked mask" ? 1e-2
                                                               : 1e-3));
         CHECK(x.asymmetry() < 1e-10);
-        if (c.name == "straight hole" || c.name == "bowed hole") continue;
+        if (c.name == "straight hole" || c.name == "bowed hole" || c.name == "uneven floor")
+            continue;
         // Fault: patches that see each other in part or not at all, as if nothing stood between.
         const int n = int(x.patches().size());
         const auto place = [&](int p) {
@@ -171,7 +172,7 @@ TEST_CASE("exact exchange: round factors and the mouth add up", "[exact][revolve
         for (int i = 0; i < n; ++i) {
             double sum = x.mouth(i);
             for (int j = 0; j < n; ++j) {
-                const double free = fluxes::ring_kernel(place(i), place(j), {}, 0, 0, scratch) *
+                const double free = fluxes::ring_kernel(place(i), place(j), {}, scratch) *
                                     x.patches().area(i) * x.patches().area(j);
                 const bool near = std::abs(i - j) < 4;
                 sum += near ? x.factor(i, j) : std::max(x.factor(i, j), free);

@@ -279,6 +279,10 @@ TEST_CASE("study page: the points of a hypercube stand against each input") {
         CHECK(has(chart.text.notes[0], "Open markers"));
         CHECK(chart.text.notes[1] == "No value from 1 point.");
     }
+    const auto answer = answer_charts(view, {}); // hardly two points share a CD: no lines by it
+    REQUIRE(answer.size() == 1);
+    REQUIRE(answer[0].second.lines.size() == 1);
+    CHECK(answer[0].second.lines[0].points.size() == 39);
     const StudyReport report = study_report(folder.path);
     const std::string html = page_of(folder.path, "study_hypercube");
     CHECK(has(html, "id=\"scatter\""));

@@ -34,6 +34,12 @@ inline std::vector<RoundCavity> all_round_cavities() {
     scalloped.push_back({9, 0, 0});
     return {
         make_round("straight hole", {{0, 0, -60}, {10, 0, -60}, {10, 0, 0}}),
+        make_round("uneven floor", {{0, 0, -60},
+                                    {2, 0, -59.98},
+                                    {5, 0, -59.95},
+                                    {8, 0, -60.01},
+                                    {10, 0, -60.03},
+                                    {10, 0, 0}}),
         make_round("tapered hole", {{0, 0, -60}, {6, 0, -60}, {11, 0, -5}, {14, 0, 0}}),
         make_round("bowed hole", bowed),
         make_round("necked hole",
