@@ -17,7 +17,7 @@ struct ProgressState {
     double time_s = 0; ///< simulated
     std::string step;
     std::optional<double> depth_nm; ///< of the first feature
-    std::string words;              ///< shown instead of step, time and depth unless empty
+    std::string words = {};         ///< shown instead of step, time and depth unless empty
     double share_before = 0;        ///< done before this clock started: by an earlier start
 };
 
