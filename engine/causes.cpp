@@ -21,14 +21,14 @@ const std::array<CauseLook, fluxes::cause_count>& cause_looks() {
         {"ion_enhanced_ions_after_1_bounce", "ions after 1 bounce", "#2f6db5", false},
         {"ion_enhanced_ions_after_2_bounces", "ions after 2 bounces", "#6fa8dc", false},
         {"ion_enhanced_ions_after_3_or_more", "ions after 3 or more", "#b9d7f2", false},
-        {"ion_enhanced_fast_neutrals", "fast neutrals", "#f2c318", false},
+        {"ion_enhanced_fast_neutrals", "fast neutrals", "#c99a00", false},
         {"sputtering_direct_ions", "sputtered by direct ions", "#0f2a66", true},
         {"sputtering_ions_after_1_bounce", "sputtered after 1 bounce", "#2f6db5", true},
         {"sputtering_ions_after_2_bounces", "sputtered after 2 bounces", "#6fa8dc", true},
         {"sputtering_ions_after_3_or_more", "sputtered after 3 or more", "#b9d7f2", true},
-        {"sputtering_fast_neutrals", "sputtered by fast neutrals", "#f2c318", true},
+        {"sputtering_fast_neutrals", "sputtered by fast neutrals", "#c99a00", true},
         {"neutrals_alone", "neutrals without ions", "#b5451b", false},
-        {"deposition", "deposition (less)", "#8a8a8a", false},
+        {"deposition", "deposition (less)", "#a0a0a0", false},
     }};
     return looks;
 }

@@ -68,7 +68,7 @@ void remove_earlier_run(const std::string& path) {
         remove_quietly(temporary(fs::path(path) / name)); // of a run that was killed
     }
     for (const char* name : {output_names::state, output_names::comparison, output_names::report,
-                             output_names::flux_csv, output_names::flux_json,
+                             output_names::grids, output_names::flux_csv, output_names::flux_json,
                              output_names::flux_svg, output_names::flux_png})
         remove_quietly((fs::path(path) / name).string());
     const fs::path arc_data = fs::path(path) / output_names::arc_data;

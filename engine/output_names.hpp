@@ -39,7 +39,7 @@ inline constexpr const char* inputs = "inputs"; ///< copies of the files that th
 /// Left while a run is not at its end: what `resume` takes up.
 inline constexpr const char* state = "state.bin";
 inline constexpr const char* all[] = {
-    resolved_case, record,     history,    profile, metrics, series,     level_set, picture_svg,
-    picture_png,   sheath_svg, sheath_png, grids,   causes,  causes_svg, causes_png};
+    resolved_case, record,      history,    profile,    metrics, series,     level_set,
+    picture_svg,   picture_png, sheath_svg, sheath_png, causes,  causes_svg, causes_png};
 
 } // namespace rille::engine::output_names

@@ -23,14 +23,6 @@ SurfaceState snapshot(const Case& the_case, Simulation& simulation, bool solved 
     state.surface = simulation.surface();
     state.grown = simulation.films();
     state.displacement = simulation.displacement_errors();
-    const auto& removed = simulation.removed();
-    const std::size_t amounts = removed.size() / 2;
-    for (std::size_t k = 0; k < amounts; ++k) {
-        state.removed.push_back(removed[k].value);
-        for (std::size_t e = 0; e < state.surface.size(); ++e)
-            if (state.surface.normal[e].z > 0.5)
-                state.removed[k][e] = removed[amounts + k].value[e];
-    }
     if (solved)
         fill_state(state, the_case, simulation.arrivals());
     else

@@ -130,7 +130,7 @@ TEST_CASE("what is wrong with a contour is named with its place", "[start]") {
     };
     const std::string head = "x_nm,z_nm\n";
     says(head + "-80,0\n30,0\n30,-40\n0,-40\n0,20\n80,20\n",
-         "c.csv:6:1: the contour crosses itself");
+         "c.csv:5:1: the contour crosses itself");
     says(head + "-80,0\n30,0\n30,-40\n0,-40\n0,20\n80,20\n", "line 2");
     says(head + "-60,0\n80,0\n",
          "c.csv:2:1: the contour does not span the period: it begins at x = -60");
@@ -145,8 +145,8 @@ TEST_CASE("what is wrong with a contour is named with its place", "[start]") {
     // A traced contour with a piece missing.
     std::string traced = head;
     for (int i = -40; i <= 40; ++i)
-        if (i < -5 || i > 5) traced += std::to_string(2 * i) + "," + std::to_string(i % 3) + "\n";
-    says(traced, "c.csv:37:1: an open gap of 24");
+        if (i < -8 || i > 8) traced += std::to_string(2 * i) + "," + std::to_string(i % 3) + "\n";
+    says(traced, "c.csv:34:1: an open gap of 36");
     // Elements of a profile that do not join.
     says("x_nm,z_nm,arc_length_nm,normal_deg,length_nm,chain\n-40,0,40,0,80,0\n45,0,120,0,70,0\n",
          "c.csv:3:1: an open gap of 10");
