@@ -190,7 +190,7 @@ private:
         if (!value.is_number()) return false;
         cells[at] = shortest(value.get<double>() + 0.0); // no -0
         cells[at + 1] = shortest(metric.value("sampling_error", 0.0));
-        const json& bound = metric.at("grid_error");
+        const json bound = metric.value("grid_error", json());
         if (bound.is_number())
             put(cells, metrics_.place(grid_bound_column(column, several_)),
                 shortest(bound.get<double>()));
