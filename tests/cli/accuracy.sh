@@ -11,10 +11,9 @@ fail() { echo "FAILED: $*"; exit 1; }
 
 sed 's/^spacing: 2 nm/accuracy: {cd: 3 nm}/' "$root/examples/poly-trench/case.yaml" >"$work/case.yaml"
 grep -q '^accuracy' "$work/case.yaml" || fail "the example has another spacing"
-options=(--set 'recipe.steps.main.no_longer_than=12 s' --set 'sampling.ions_per_species=2048' --quiet)
-run() { "$rille" run "$work/case.yaml" "${options[@]}" "$@"; }
+options=(--set 'recipe.steps.main.no_longer_than=5 s' --set 'sampling.ions_per_species=2048' --quiet)
 
-run -o "$work/whole" || fail "run: status $?"
+"$rille" run "$work/case.yaml" "${options[@]}" -o "$work/whole" || fail "run: status $?"
 /usr/bin/python3 - "$work/whole" <<'END' || fail "errors"
 import json, math, sys
 folder = sys.argv[1]
@@ -31,9 +30,9 @@ END
 grep -q '^accuracy:' "$work/whole/case.yaml" || fail "the case lost its accuracy"
 
 # Stopped among the companions.
-run -o "$work/stopped" 2>/dev/null &
+"$rille" run "$work/case.yaml" "${options[@]}" -o "$work/stopped" 2>/dev/null &
 pid=$!
-for _ in $(seq 400); do
+for _ in $(seq 2000); do
     [ -e "$work/stopped/grids.json" ] && break
     sleep 0.02
 done
