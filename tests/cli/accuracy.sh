@@ -46,4 +46,4 @@ for other in stopped again; do
         cmp "$work/whole/$file" "$work/$other/$file" || fail "$file of $other"
     done
 done
-"$rille" resume "$work/whole" --quiet 2>/dev/null && fail "an ended search was taken up"
+! "$rille" resume "$work/whole" --quiet 2>/dev/null || fail "an ended search was taken up"
