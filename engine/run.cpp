@@ -123,6 +123,12 @@ void note_health(const Case& the_case, const Expectation& expected, const Simula
     record.elements = simulation.surface().size();
     record.voxels = simulation.front().band().size();
     record.refreshes = health.refreshes;
+    if (health.by_rays > 0)
+        record.warnings.push_back(
+            "neutrals were exchanged by rays, with sampling error, in " +
+            std::to_string(health.by_rays) + " of " + std::to_string(health.refreshes) +
+            " refreshes: their exact exchange does not serve a surface that floats, touches itself "
+            "or overhangs the open field");
     record.rays = health.rays;
     record.lost_rays = health.lost_rays;
     record.redistance_shift = health.largest_redistance_shift;

@@ -40,8 +40,6 @@ struct SurfaceState {
     /// displacement[b][e] [nm]: where batch b alone would have put the element, less where all put
     /// it (either sign convention); 8 batches, or empty where nothing is sampled.
     std::vector<std::vector<double>> displacement;
-    /// removed[k][e] [nm]: values of Simulation::removed(), or empty where they are not known.
-    std::vector<std::vector<double>> removed;
 };
 
 /// Fills material, film, rate and fields of a state from the surface step that was solved on it.

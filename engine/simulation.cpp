@@ -103,11 +103,6 @@ Simulation::Simulation(const Case& the_case)
         error_fields_.push_back({"displacement error " + std::to_string(b),
                                  geometry::Carry::intensive,
                                  std::vector<double>(surface_.size(), 0.0)});
-    const std::size_t amounts =
-        unexplained_removal + 1 + fluxes::ion_paths + case_.mechanism.neutrals.size();
-    const std::vector<double> none(surface_.size(), 0.0);
-    removed_.assign(amounts, {"removed from walls", geometry::Carry::per_area, none});
-    removed_.resize(2 * amounts, {"removed from floors", geometry::Carry::intensive, none});
     begin_step();
 }
 
@@ -180,6 +175,7 @@ fluxes::SurfaceStep Simulation::solve(const Surface& surface, const geometry::Gr
     health_.largest_sticking_residual =
         std::max(health_.largest_sticking_residual, solved.residual);
     ++health_.refreshes;
+    if (!solved.inexact.empty()) ++health_.by_rays;
     check_lost_rays(health_);
     return solved;
 }
@@ -263,15 +259,6 @@ void Simulation::average_rates(fluxes::SurfaceStep& now, const fluxes::SurfaceSt
         for (std::size_t b = 0; b < now.rate_batch.size(); ++b)
             now.rate_batch[b][e] =
                 0.5 * (now.rate_batch[b][e] + later.rate_batch[b][there.element]);
-        const double share = there.partner < 0 ? 0 : there.share;
-        const int partner = there.partner < 0 ? there.element : there.partner;
-        const auto mean = [&](fluxes::CauseFields& mine, const fluxes::CauseFields& other) {
-            for (std::size_t k = 0; k < mine.size(); ++k)
-                mine[k][e] = 0.5 * (mine[k][e] + (1 - share) * other[k][there.element] +
-                                    share * other[k][partner]);
-        };
-        mean(now.cause, later.cause);
-        mean(now.supply, later.supply);
     }
 }
 
@@ -378,7 +365,6 @@ void Simulation::accept(Trial&& trial, const fluxes::SurfaceStep& step) {
         for (std::size_t b = 0; b < step.rate_batch.size(); ++b)
             error_fields_[b].value[e] += (step.rate_batch[b][e] - mean) * dt;
     }
-    if (dt > 0) add_removed(trial, step);
     {
         const Stopwatch watch(timings_.carry);
         std::vector<geometry::SurfaceField> thickness;
@@ -389,7 +375,6 @@ void Simulation::accept(Trial&& trial, const fluxes::SurfaceStep& step) {
             fields.push_back(&field);
         for (auto& field : error_fields_)
             fields.push_back(&field);
-        list_removed(trial.surface.size(), fields);
         geometry::carry_fields(surface_, trial.surface, trial.report.moved, case_.domain, fields);
         for (std::size_t f = 0; f < thickness.size(); ++f)
             films_.thickness[f] = std::move(thickness[f].value);

@@ -32,15 +32,13 @@ struct Timings {
     double sum() const { return extract + solves() + advance + carry; }
 };
 
-/// Index in Simulation::removed() of what no cause explains; supplies follow.
-constexpr int unexplained_removal = fluxes::cause_count;
-
 /// Counters of everything that could quietly go wrong.
 struct Health {
     std::uint64_t rays = 0, lost_rays = 0;
     double largest_redistance_shift = 0; ///< [cells]
     double largest_sticking_residual = 0;
     int refreshes = 0, sub_steps = 0;
+    int by_rays = 0;   ///< refreshes whose neutrals had no exact exchange where symmetry allows one
     int shortened = 0; ///< steps done again because the arrivals changed too much in them
 };
 
@@ -83,12 +81,6 @@ public:
     const geometry::GrownFilms& films() const { return films_; }
     /// Displacement error of the elements by batch: [batch][element], nm, along -normal.
     std::vector<std::vector<double>> displacement_errors() const;
-    /// What was removed [nm], on the elements of the present surface: by each cause
-    /// (fluxes::CauseRates), then what no cause explains, then what each supply brought
-    /// (SurfaceStep::supply); first from walls since they are walls, as amounts per area, then once
-    /// more from what faces up (normal.z > 0.5) since the start of the run, as values along its
-    /// way. Causes and the unexplained add up to the way that the surface has gone.
-    const std::vector<geometry::SurfaceField>& removed() const { return removed_; }
     /// Outermost material of each element.
     std::vector<int> materials() const;
     /// Arrivals and rates on the present surface under the plasma of the present (or last) step;
@@ -140,10 +132,6 @@ private:
     /// the longest that it might have been. Whether this one may have been far too long.
     bool pace(double change, double share);
     void accept(Trial&&, const fluxes::SurfaceStep&);
-    void add_removed(const Trial&, const fluxes::SurfaceStep&);
-    /// Adds the amounts that must be carried to `fields`; the others are nothing on `size`
-    /// elements.
-    void list_removed(std::size_t size, std::vector<geometry::SurfaceField*>& fields);
     void find_isolated();
     double distance_to_goal(const geometry::Surface&) const;
     double step_end_time() const;
@@ -158,7 +146,6 @@ private:
     geometry::GrownFilms films_;
     geometry::FilmBases bases_;                        ///< one per grown film
     std::vector<geometry::SurfaceField> error_fields_; ///< one per batch
-    std::vector<geometry::SurfaceField> removed_;      ///< see removed()
     fluxes::SurfaceStep present_;
     bool present_valid_ = false;
     /// What the solve of the present arrivals started from: it is done again after a resume.

@@ -15,8 +15,6 @@ void Simulation::visit(Archive& archive, Self& self) {
     archive(self.films_.thickness);
     for (auto& field : self.error_fields_)
         archive(field.value);
-    for (auto& field : self.removed_)
-        archive(field.value);
     self.bases_.visit(archive, self.bases_);
     self.open_field_.visit(archive, self.open_field_);
     archive(self.duration_s_);
@@ -98,8 +96,6 @@ Simulation::Simulation(const Case& the_case, const std::string& saved) : Simulat
     if (!archive.at_end()) throw NumericsError("a saved state does not end where it should");
     for (const auto& field : error_fields_)
         RILLE_CHECK(field.value.size() == surface_.size(), "saved fields of another front");
-    for (const auto& field : removed_)
-        RILLE_CHECK(field.value.size() == surface_.size(), "saved amounts of another front");
     if (solved) arrivals();
 }
 

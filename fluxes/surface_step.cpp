@@ -185,16 +185,19 @@ IonArrivals gather_ions(const Setting& s, const std::vector<IonReflection>& refl
 }
 
 /// Exact where the symmetry allows it, else from rays. Rays do not mind a surface that touches
-/// itself, either.
-std::unique_ptr<ExchangeOperator> exchange_of(const Setting& s) {
+/// itself, either; `inexact` then says why they were needed.
+std::unique_ptr<ExchangeOperator> exchange_of(const Setting& s, std::string& inexact) {
     std::vector<int> material(s.surface.size());
     for (std::size_t e = 0; e < material.size(); ++e)
         material[e] = s.outermost(static_cast<int>(e));
     if (ExactExchange::serves(s.domain, s.surface)) {
         try {
             return std::make_unique<ExactExchange>(s.domain, s.surface, s.caster, material);
-        } catch (const NumericsError&) {
+        } catch (const NumericsError& error) {
+            inexact = error.what();
         }
+    } else if (s.domain.planar_contour()) {
+        inexact = "something floats in the gas";
     }
     const Exchange::Options options{s.sampling.rays_per_element, s.sampling.seed,
                                     s.sampling.refresh};
@@ -203,7 +206,7 @@ std::unique_ptr<ExchangeOperator> exchange_of(const Setting& s) {
 
 /// Neutrals solved together with the sticking that the kinetics of the outermost material gives.
 CoupledArrivals gather_neutrals(const Setting& s, const IonArrivals& ions,
-                                const SurfaceStep* previous) {
+                                const SurfaceStep* previous, std::string& inexact) {
     s.clock.begin(&SurfaceStep::Seconds::neutrals);
     CoupledArrivals none;
     none.batch_flux.resize(batches);
@@ -211,7 +214,7 @@ CoupledArrivals gather_neutrals(const Setting& s, const IonArrivals& ions,
     std::vector<double> open;
     for (const NeutralSource& source : s.sources.neutrals)
         open.push_back(source.flux);
-    const std::unique_ptr<ExchangeOperator> exchange = exchange_of(s);
+    const std::unique_ptr<ExchangeOperator> exchange = exchange_of(s, inexact);
     const StickingOf sticking = [&](int e, int batch, const double* neutrals) {
         return s.respond_at(s.outermost(e), ions.at(e, batch), neutrals).sticking;
     };
@@ -273,9 +276,11 @@ void respond_everywhere(const Setting& s, const IonArrivals& ions,
     step.growth_material.assign(n, -1);
     step.rate_batch.assign(batches, std::vector<double>(n, 0));
     const std::size_t supplies = ion_paths + s.mechanism.neutrals.size();
-    step.cause.assign(cause_count, std::vector<double>(n, 0));
-    step.supply.assign(supplies, std::vector<double>(n, 0));
-    if (detail) detail->cause_batch.assign(batches, step.cause);
+    if (detail) {
+        step.cause.assign(cause_count, std::vector<double>(n, 0));
+        step.supply.assign(supplies, std::vector<double>(n, 0));
+        detail->cause_batch.assign(batches, step.cause);
+    }
     for_elements(n, [&](int e) {
         const int material = s.outermost(e);
         const auto neutrals = at_element(step.neutral, e);
@@ -283,11 +288,13 @@ void respond_everywhere(const Setting& s, const IonArrivals& ions,
         step.response[e] = r;
         if (r.rate < 0) step.growth_material[e] = r.grown_material;
         const std::size_t paths = std::size_t(e) * ion_paths * ions.tallies;
-        put(cause_rates(s.mechanism, material, r, &ions.by_path[paths]), e, step.cause);
-        put(supply_rates(s.mechanism, material,
-                         {ions.at(e, -1), neutrals.data(), s.sources.wafer_temperature_k},
-                         &ions.by_path[paths]),
-            e, step.supply);
+        if (detail) {
+            put(cause_rates(s.mechanism, material, r, &ions.by_path[paths]), e, step.cause);
+            put(supply_rates(s.mechanism, material,
+                             {ions.at(e, -1), neutrals.data(), s.sources.wafer_temperature_k},
+                             &ions.by_path[paths]),
+                e, step.supply);
+        }
         for (int b = 0; b < batches; ++b) {
             const auto of_batch = at_element(batch_flux[b], e);
             const SurfaceResponse one = s.respond_at(material, ions.at(e, b), of_batch.data());
@@ -313,10 +320,10 @@ SurfaceStep solve_surface(const geometry::Domain& domain, const geometry::Surfac
         RILLE_CHECK(reach.first[e] < reach.first[e + 1], "at least one material in reach");
     const Setting setting{domain, surface, caster, reach, mechanism, sources, sampling};
     IonArrivals ions = gather_ions(setting, reflection, previous);
-    CoupledArrivals neutrals = gather_neutrals(setting, ions, previous);
+    SurfaceStep step;
+    CoupledArrivals neutrals = gather_neutrals(setting, ions, previous, step.inexact);
 
     setting.clock.begin(&SurfaceStep::Seconds::kinetics);
-    SurfaceStep step;
     step.ion_tables = ions.tables;
     step.neutral = std::move(neutrals.flux);
     step.iterations = neutrals.iterations;

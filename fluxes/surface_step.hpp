@@ -13,6 +13,7 @@
 
 #include <cstdint>
 #include <memory>
+#include <string>
 #include <vector>
 
 namespace rille::fluxes {
@@ -38,7 +39,7 @@ struct Sampling {
     int ion_directions = 64;
     std::uint64_t seed = 1;
     std::uint64_t refresh = 0;
-    bool detailed = false; ///< SurfaceStep::detail is filled
+    bool detailed = false; ///< SurfaceStep::cause, supply and detail are filled
 };
 
 /// Materials that a step may meet at each element, outermost first: reach[first[e]..first[e + 1]).
@@ -65,8 +66,9 @@ struct SurfaceStep {
     std::vector<std::vector<double>> ion_flux; ///< [species][element] direct, [nm^-2 s^-1]
     /// [species][element] direct fast neutrals of that ion; empty for an ion without any.
     std::vector<std::vector<double>> fast_neutral_flux;
-    CauseFields cause;  ///< parts of the rate of the outermost material: cause_rates()
-    CauseFields supply; ///< supply_rates() of the same: paths of ions, then neutral species
+    /// Empty unless Sampling::detailed: parts of the rate of the outermost material, cause_rates(),
+    /// and supply_rates() of the same: paths of ions, then neutral species.
+    CauseFields cause, supply;
     std::shared_ptr<const SurfaceDetail> detail; ///< null unless Sampling::detailed
     /// rate_batch[b][e]: the rate had only batch b been used; their spread is the sampling error.
     std::vector<std::vector<double>> rate_batch;
@@ -75,6 +77,9 @@ struct SurfaceStep {
     std::shared_ptr<const IonTables> ion_tables;
     int iterations = 0;  ///< of transport and kinetics against each other
     double residual = 0; ///< largest change of a sticking probability in the last one
+    /// Why neutrals were exchanged by rays, with sampling error, where the symmetry allows an exact
+    /// exchange; empty where that was done.
+    std::string inexact;
     /// Wall time [s] of the solve, part by part; `kinetics` also tabulates the rates.
     struct Seconds {
         double direct_ions = 0, reflected_ions = 0, neutrals = 0, kinetics = 0;

@@ -40,6 +40,17 @@ StudyTableColumn plain_column(Role role, const std::string& name, const std::str
     return column;
 }
 
+/// The column of what is known about a metric beside its value.
+StudyTableColumn beside(const StudyTableColumn& metric, bool several, Role role,
+                        const std::string& ending) {
+    StudyTableColumn column = metric;
+    column.role = role;
+    column.name = with_unit(name_part(metric.label) + of_feature(metric.feature, several) + ending,
+                            metric.unit);
+    column.definition.clear();
+    return column;
+}
+
 std::string one_line(std::string text) {
     for (char& c : text)
         if (c == '\n' || c == '\r' || c == '|') c = ' ';
@@ -86,21 +97,11 @@ StudyTableColumn metric_column(const std::string& metric, const std::string& fea
 }
 
 StudyTableColumn error_column(const StudyTableColumn& metric, bool several) {
-    StudyTableColumn column = metric;
-    column.role = Role::error;
-    column.name = with_unit(
-        name_part(metric.label) + of_feature(metric.feature, several) + "_error", metric.unit);
-    column.definition.clear();
-    return column;
+    return beside(metric, several, Role::error, "_error");
 }
 
 StudyTableColumn grid_bound_column(const StudyTableColumn& metric, bool several) {
-    StudyTableColumn column = metric;
-    column.role = Role::grid_bound;
-    column.name = with_unit(
-        name_part(metric.label) + of_feature(metric.feature, several) + "_grid_error", metric.unit);
-    column.definition.clear();
-    return column;
+    return beside(metric, several, Role::grid_bound, "_grid_error");
 }
 
 StudyTableColumn target_column(const std::string& metric, const std::string& feature,

@@ -4,7 +4,6 @@
 
 #include "engine/case.hpp"
 #include "engine/run_result.hpp"
-#include "fluxes/causes.hpp"
 #include "tests/support/shapes.hpp"
 
 #include <cmath>
@@ -119,17 +118,6 @@ inline SurfaceState trench_state(const Case& c, double share, double time_s) {
         state.displacement.emplace_back(n);
         for (std::size_t e = 0; e < n; ++e)
             state.displacement.back()[e] = 0.3 * std::sin(1.7 * b + 0.9) * share;
-    }
-    const std::size_t supplies = fluxes::ion_paths + c.mechanism.neutrals.size();
-    state.removed.assign(fluxes::cause_count + 1 + supplies, std::vector<double>(n, 0.0));
-    for (std::size_t e = 0; e < n; ++e) {
-        const bool wall = std::fabs(state.surface.normal[e].x) > 0.9;
-        const double all = wall ? 4 * share : 240 * share;
-        state.removed[fluxes::enhanced_cause][e] = (wall ? 0.3 : 0.8) * all;
-        state.removed[fluxes::enhanced_cause + 1][e] = (wall ? 0.3 : 0.05) * all;
-        state.removed[fluxes::sputtering_cause][e] = 0.1 * all;
-        state.removed[fluxes::neutral_cause][e] = (wall ? 0.35 : 0.05) * all;
-        state.removed[fluxes::deposition_cause][e] = wall ? -0.05 * all : 0;
     }
     return state;
 }

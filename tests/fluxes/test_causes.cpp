@@ -31,6 +31,7 @@ struct Trench {
     Sampling sampling;
 
     explicit Trench(double spread_ev = 1) {
+        sampling.detailed = true;
         const double width = 20;
         domain.cells_x = int(2 * width);
         surface = tests::trench(domain, width, 3 * width, 1);
@@ -89,7 +90,6 @@ TEST_CASE("causes add up to the rate", "[causes]") {
     // Source: derived here.
     // Tolerance: 1e-9 of every rate, of all rays and of every batch.
     Trench scene;
-    scene.sampling.detailed = true;
     scene.sources.fast_neutrals = {{0, {"Ar", 40, 30, IonDistribution::thermal_fall(60, 2, 0.05)}}};
     SurfaceStep step = scene.solve();
     CHECK(largest_gap(step) < 1e-9);
