@@ -276,11 +276,12 @@ void respond_everywhere(const Setting& s, const IonArrivals& ions,
     step.growth_material.assign(n, -1);
     step.rate_batch.assign(batches, std::vector<double>(n, 0));
     const std::size_t supplies = ion_paths + s.mechanism.neutrals.size();
-    if (detail) {
+    const bool causes = detail || s.sampling.causes;
+    if (causes) {
         step.cause.assign(cause_count, std::vector<double>(n, 0));
         step.supply.assign(supplies, std::vector<double>(n, 0));
-        detail->cause_batch.assign(batches, step.cause);
     }
+    if (detail) detail->cause_batch.assign(batches, step.cause);
     for_elements(n, [&](int e) {
         const int material = s.outermost(e);
         const auto neutrals = at_element(step.neutral, e);
@@ -288,7 +289,7 @@ void respond_everywhere(const Setting& s, const IonArrivals& ions,
         step.response[e] = r;
         if (r.rate < 0) step.growth_material[e] = r.grown_material;
         const std::size_t paths = std::size_t(e) * ion_paths * ions.tallies;
-        if (detail) {
+        if (causes) {
             put(cause_rates(s.mechanism, material, r, &ions.by_path[paths]), e, step.cause);
             put(supply_rates(s.mechanism, material,
                              {ions.at(e, -1), neutrals.data(), s.sources.wafer_temperature_k},
