@@ -22,9 +22,9 @@ namespace {
 using geometry::Surface;
 using geometry::Vec3;
 
-constexpr double touching = 1e-6;   // [cells] a front this near to a film has reached it
-constexpr int shortest_pace = 3;    // halvings of the longest step
-constexpr double no_film_nm = 1e-9; // thinner grown film counts as none
+constexpr double touching = 1e-6;        // [cells] a front this near to a film has reached it
+constexpr double shortest_move = 0.0625; // [cells] steps are not halved further
+constexpr double no_film_nm = 1e-9;      // thinner grown film counts as none
 
 /// Adds the wall time of its scope to a counter.
 class Stopwatch {
@@ -267,8 +267,9 @@ void Simulation::average_rates(fluxes::SurfaceStep& now, const fluxes::SurfaceSt
 /// Steps are halved and doubled, so that noise seldom decides about their length.
 bool Simulation::pace(double change, double share) {
     const int before = pace_;
+    const int most = std::max(0, int(std::lround(std::log2(case_.refresh_move / shortest_move))));
     if (change > case_.refresh_change)
-        pace_ = std::min(pace_ + 1, shortest_pace);
+        pace_ = std::min(pace_ + 1, most);
     else if (change < 0.4 * case_.refresh_change && share > 0.9)
         pace_ = std::max(pace_ - 1, 0);
     return change > 10 * case_.refresh_change && pace_ > before;
@@ -308,7 +309,7 @@ Simulation::Trial Simulation::heun(double time_limit) {
             continue;
         }
         average_rates(present_, later, there);
-        Trial trial = try_advance(present_, predicted.report.time, 2 * case_.refresh_move);
+        Trial trial = try_advance(present_, predicted.report.time, 2 * longest);
         trial.at_start = ledger_.read(surface_, now.cause, now.supply);
         trial.at_end = ledger_.read(predicted.surface, later.cause, later.supply);
         return trial;

@@ -60,6 +60,7 @@ struct IonArrivals {
     std::vector<double> by_path; ///< [(element * ion_paths + path) * tallies + m]
     std::vector<std::vector<double>> by_path_batch; ///< [batch], where they are asked for
     std::vector<double> reflected;                  ///< [element][tally], mean over batches
+    std::vector<double> reflected_from;             ///< ReflectedIons::from_angle, or empty
     std::vector<double> total;                      ///< [element][tally], direct and reflected
     std::vector<std::vector<double>> batch; ///< [batch][element][tally]: the same of one batch
 
@@ -181,6 +182,7 @@ IonArrivals gather_ions(const Setting& s, const std::vector<IonReflection>& refl
                                   options);
     }
     for_elements(n, [&](int e) { add_up(bounced, n, e, ions); });
+    ions.reflected_from = std::move(bounced.from_angle);
     return ions;
 }
 
@@ -242,12 +244,20 @@ void tabulate(const Setting& s, const IonArrivals& ions, SurfaceStep& step) {
     for_elements(s.surface.size(), [&](int e) {
         const auto neutrals = at_element(step.neutral, e);
         const double* bounced = ions.reflected.data() + std::size_t(e) * ions.tallies;
+        const geometry::Vec3& n = s.surface.normal[e];
+        const double own = s.domain.planar_contour() ? std::atan2(n.x, n.z)
+                                                     : std::acos(std::clamp(n.z, -1.0, 1.0));
         std::vector<double> tallies(ions.tallies), last;
         std::vector<DirectIons::TallyRow> direct(any_ions ? ions.counts_for.size() : 0);
         for (int m = 0; m < int(direct.size()); ++m)
             direct[m] = ions.direct->tally_row(m, e);
         for (std::size_t a = 0; a < angles; ++a) {
-            std::copy(bounced, bounced + ions.tallies, tallies.begin());
+            const double left =
+                ions.reflected_from.empty()
+                    ? 1.0
+                    : share_after_turn(own, ions.reflected_from[e], rates.angles[a]);
+            for (int m = 0; m < ions.tallies; ++m)
+                tallies[m] = left * bounced[m];
             for (std::size_t m = 0; m < direct.size(); ++m)
                 tallies[ions.counts_for[m]] += direct[m].factor * direct[m].value[a];
             const bool same = a > 0 && tallies == last; // turned away from every ion, or no ions
