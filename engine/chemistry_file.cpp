@@ -101,6 +101,8 @@ double kept(const SurfaceChemistry& surface, int neutral, int coverage) {
             sum += r->neutral == neutral && r->coverage == coverage ? r->probability.at(room_k) : 0;
         if (const auto* d = std::get_if<Deposition>(&process))
             sum += d->neutral == neutral && d->coverage == coverage ? d->sticking : 0;
+        if (const auto* r = std::get_if<Redeposition>(&process))
+            sum += r->neutral == neutral ? r->sticking : 0;
     }
     return sum;
 }
@@ -152,8 +154,10 @@ private:
                                      "configs/neutrals.yaml", problems_);
         yields_ = map.optional("yields");
         if (yields_) MapReader(*yields_, problems_);
+        by_products_ = map.optional("by_products");
         materials_ = map.required("materials");
         map.finish();
+        if (by_products_) read_by_product_names();
         if (!materials_) return;
         MapReader(*materials_, problems_);
         for (const YamlNode::Member& member : materials_->members) {
@@ -166,6 +170,43 @@ private:
         }
     }
 
+    void read_by_product_names() {
+        MapReader(*by_products_, problems_);
+        for (const YamlNode::Member& member : by_products_->members) {
+            names_.by_products.push_back(member.key);
+            if (!contains(names_.neutrals, member.key))
+                problems_.add(member.key_at, member.value.path,
+                              fmt::format("{} is not among the neutrals: {}{}", quoted(member.key),
+                                          listed(names_.neutrals),
+                                          did_you_mean(member.key, names_.neutrals)));
+        }
+        std::vector<std::string> all;
+        for (const YamlNode::Member& member : materials_->members)
+            all.push_back(member.key);
+        const auto given_off = by_products_in_use(*materials_, *by_products_, all);
+        for (const YamlNode::Member& member : by_products_->members)
+            if (!contains(given_off, member.key))
+                problems_.add(member.key_at, member.value.path,
+                              "no process gives it off: leaves_as names it nowhere");
+    }
+
+    /// By-products come with the materials that give them off, whatever the plasma supplies.
+    void add_by_products() {
+        if (!by_products_) return;
+        std::vector<std::string> materials;
+        for (const NamedUse& use : request_.materials)
+            materials.push_back(use.name);
+        in_use_ = by_products_in_use(*materials_, *by_products_, materials);
+        Mechanism& m = chemistry.mechanism;
+        std::vector<std::string> neutrals;
+        for (const std::string& name : names_.neutrals)
+            if (contains(m.neutrals, name) || contains(in_use_, name)) neutrals.push_back(name);
+        m.neutrals = std::move(neutrals);
+        if (in_use_.empty()) return;
+        for (const std::string& name : m.neutrals)
+            m.cosine_power.push_back(contains(in_use_, name) ? 1 : 0);
+    }
+
     void choose_species() {
         const std::string& name = request_.chemistry.name;
         Mechanism& m = chemistry.mechanism;
@@ -175,6 +216,7 @@ private:
         m.neutrals = request_.neutrals
                          ? used(names_.neutrals, *request_.neutrals, "neutral", name, problems_)
                          : names_.neutrals;
+        add_by_products();
         if (m.neutrals.size() > max_species)
             problems_.add(request_.chemistry.at, request_.chemistry.path,
                           fmt::format("at most {} neutral species can be followed, {} are used",
@@ -207,9 +249,32 @@ private:
     void read_surfaces() {
         ProcessReader reader(names_, library_, yields_, chemistry.mechanism, chemistry.materials,
                              problems_);
+        struct Settling {
+            int neutral, film;
+            double sticking;
+            const YamlNode* node;
+        };
+        std::vector<Settling> settling;
+        for (const std::string& name : in_use_) {
+            const YamlNode* node = by_products_->find(name);
+            const ByProduct product = reader.read_by_product(*node);
+            const auto& neutrals = chemistry.mechanism.neutrals;
+            const auto at = std::find(neutrals.begin(), neutrals.end(), name);
+            if (!product.film.empty() && at != neutrals.end())
+                settling.push_back({static_cast<int>(at - neutrals.begin()),
+                                    reader.film_id(product.film), product.sticking, node});
+        }
         // By index: films that grow are appended while their hosts are read.
         for (std::size_t i = 0; i < chemistry.materials.size(); ++i)
             read_surface(reader, std::string(chemistry.materials[i]), chemistry.mechanism, true);
+        if (chemistry.mechanism.surfaces.size() == chemistry.materials.size())
+            for (const Settling& s : settling)
+                add_redeposition(chemistry.mechanism, s.neutral, s.film, s.sticking, *s.node,
+                                 problems_);
+        for (const fluxes::SurfaceChemistry& surface : chemistry.mechanism.surfaces)
+            if (!settling.empty())
+                check_probabilities(surface, chemistry.mechanism.neutrals,
+                                    *materials_->find(surface.material), problems_);
         count(reader.counts());
         chemistry.open = reader.open();
         count(library_.common_standing);
@@ -224,6 +289,8 @@ private:
         ProcessReader reader(names_, library_, yields_, scratch, films, problems_);
         for (const std::string& name : names_.materials)
             if (!contains(chemistry.materials, name)) read_surface(reader, name, scratch, false);
+        for (const std::string& name : names_.by_products)
+            if (!contains(in_use_, name)) reader.read_by_product(*by_products_->find(name));
     }
 
     void count(const std::map<Standing, int>& counts) {
@@ -238,6 +305,8 @@ private:
     ChemistryNames names_;
     const YamlNode* yields_ = nullptr;
     const YamlNode* materials_ = nullptr;
+    const YamlNode* by_products_ = nullptr;
+    std::vector<std::string> in_use_; ///< by-products
 };
 
 } // namespace

@@ -197,6 +197,54 @@ Tallies ProcessReader::tallies(const YamlNode* node, const YieldFunction& yield)
     return indices;
 }
 
+/// A by-product by name, one for each unit, or a map of several with a cited amount each.
+Leavings ProcessReader::leavings(Process& p) {
+    Leavings leavings;
+    const YamlNode* node = p.map.optional("leaves_as");
+    if (!node) return leavings;
+    if (names_.by_products.empty()) {
+        problems_.add(node->at, node->path,
+                      "the file has no section by_products that says what may leave");
+        return leavings;
+    }
+    const auto add = [&](const std::string& name, double per_unit) {
+        const int index = index_of(mechanism_.neutrals, name);
+        if (index >= 0 && per_unit > 0) leavings.push_back({index, per_unit});
+    };
+    if (!node->is_map()) {
+        if (const auto name = read_word(*node, names_.by_products, problems_)) add(*name, 1);
+        return leavings;
+    }
+    if (node->members.empty())
+        problems_.add(node->at, node->path, "a by-product, or a map of by-products is due");
+    for (const YamlNode::Member& member : node->members) {
+        const double per_unit = parameters_.value(&member.value, count_form);
+        if (index_of(names_.by_products, member.key) >= 0)
+            add(member.key, per_unit);
+        else
+            problems_.add(member.key_at, member.value.path,
+                          fmt::format("{} is not among by_products: {}{}", quoted(member.key),
+                                      listed(names_.by_products),
+                                      did_you_mean(member.key, names_.by_products)));
+    }
+    return leavings;
+}
+
+ByProduct ProcessReader::read_by_product(const YamlNode& node) {
+    ByProduct product;
+    MapReader map(node, problems_);
+    const YamlNode* film = map.optional("film");
+    const YamlNode* sticking = map.optional("sticking");
+    if (node.is_map() && (film == nullptr) != (sticking == nullptr))
+        problems_.add(node.at, node.path,
+                      "needs both film and sticking, or neither: what does not stick builds up no "
+                      "film");
+    product.sticking = parameters_.value(sticking, sticking_form);
+    if (film) product.film = read_word(*film, names_.materials, problems_).value_or("");
+    map.finish();
+    return product;
+}
+
 IonAssistance ProcessReader::assistance(Process& p) {
     IonAssistance result;
     const YamlNode* node = p.map.optional("ion_assistance");
@@ -256,6 +304,7 @@ void ProcessReader::read_ion_enhanced_etching(Process& p) {
     e.coverage = adsorbate(p);
     e.atoms = parameters_.value(p.map.required("atoms_per_unit"), count_form, 1);
     e.tallies = yield_tallies(p);
+    e.leaves = leavings(p);
     if (!e.tallies.empty()) p.add(e);
 }
 
@@ -263,6 +312,7 @@ void ProcessReader::read_physical_sputtering(Process& p) {
     PhysicalSputtering s;
     s.on = part(p);
     s.tallies = yield_tallies(p);
+    s.leaves = leavings(p);
     if (!s.tallies.empty()) p.add(s);
 }
 
@@ -273,6 +323,7 @@ void ProcessReader::read_spontaneous_etching(Process& p) {
     s.probability = arrhenius(p.map.required("probability"), probability_form);
     s.atoms = parameters_.value(p.map.required("atoms_per_unit"), count_form, 1);
     s.on = part(p);
+    s.leaves = leavings(p);
     if (in_use) p.add(s);
 }
 
@@ -281,6 +332,7 @@ void ProcessReader::read_thermal_etching(Process& p) {
     e.coverage = adsorbate(p);
     e.flux = surface_flux(p);
     e.atoms = parameters_.value(p.map.required("atoms_per_unit"), count_form, 1);
+    e.leaves = leavings(p);
     p.add(e);
 }
 
@@ -288,6 +340,7 @@ void ProcessReader::read_ion_removal(Process& p) {
     IonRemoval r;
     r.coverage = adsorbate(p);
     r.tallies = yield_tallies(p);
+    r.leaves = leavings(p);
     if (!r.tallies.empty()) p.add(r);
 }
 

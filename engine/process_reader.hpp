@@ -1,6 +1,7 @@
 // SPDX-License-Identifier: Apache-2.0
 #pragma once
 
+#include "engine/by_products.hpp"
 #include "engine/materials_file.hpp"
 #include "engine/parameters.hpp"
 #include "engine/yield_reader.hpp"
@@ -17,6 +18,7 @@ namespace rille::engine {
 /// What the processes of a chemistry file may refer to.
 struct ChemistryNames {
     std::vector<std::string> ions, neutrals; ///< that the file declares
+    std::vector<std::string> by_products;    ///< those neutrals that surfaces give off
     std::vector<std::string> materials;      ///< that the file describes
 };
 
@@ -31,6 +33,10 @@ public:
     /// One material: {adsorbates: [...], processes: [...], ion_reflection: {...}}. Changes the
     /// reflection law if the chemistry has its own.
     fluxes::SurfaceChemistry read(const YamlNode&, const MaterialData&, fluxes::IonReflection&);
+    /// One entry of the section of by-products: {film: ..., sticking: ...} or nothing.
+    ByProduct read_by_product(const YamlNode&);
+    /// Index of a material of the run, added to the list if it is not there.
+    int film_id(const std::string& film);
     const std::map<fluxes::Standing, int>& counts() const { return parameters_.counts(); }
     const std::vector<OpenParameter>& open() const { return parameters_.open(); }
 
@@ -55,10 +61,10 @@ private:
     fluxes::Arrhenius arrhenius(const YamlNode*, const ParameterForm&);
     fluxes::Arrhenius surface_flux(Process&);
     fluxes::Tallies yield_tallies(Process&);
+    fluxes::Leavings leavings(Process&);
     fluxes::Tallies tallies(const YamlNode* ions, const fluxes::YieldFunction&);
     fluxes::IonAssistance assistance(Process&);
     fluxes::YieldFunction named_yield(const YamlNode&);
-    int film_id(const std::string& film);
 
     const ChemistryNames& names_;
     const MaterialsLibrary& library_;

@@ -48,14 +48,19 @@ geometry::Front initial_front(const Case& c) {
 }
 
 /// Film materials that may grow in the run, deepest first: the liner, then what the chemistry
-/// deposits.
+/// deposits, last what by-products build up.
 geometry::GrownFilms initial_films(const Case& c, std::size_t elements) {
     geometry::GrownFilms films;
     if (c.liner_thickness > 0) {
         films.material.push_back(c.liner_material);
         films.thickness.emplace_back(elements, c.liner_thickness);
     }
-    for (const int material : fluxes::deposited_materials(c.mechanism))
+    std::vector<int> materials = fluxes::deposited_materials(c.mechanism);
+    const std::vector<int> returning = fluxes::redeposited_materials(c.mechanism);
+    std::stable_partition(materials.begin(), materials.end(), [&](int m) {
+        return !std::binary_search(returning.begin(), returning.end(), m);
+    });
+    for (const int material : materials)
         if (std::find(films.material.begin(), films.material.end(), material) ==
             films.material.end()) {
             films.material.push_back(material);
@@ -64,18 +69,32 @@ geometry::GrownFilms initial_films(const Case& c, std::size_t elements) {
     return films;
 }
 
+/// Which films grow mixed with the film below: what by-products build up, in any order.
+std::vector<char> mixed_films(const Case& c, const std::vector<int>& films) {
+    const std::vector<int> returning = fluxes::redeposited_materials(c.mechanism);
+    const auto returns = [&](std::size_t f) {
+        return (f > 0 || c.liner_thickness <= 0) &&
+               std::binary_search(returning.begin(), returning.end(), films[f]);
+    };
+    std::vector<char> mixed(films.size(), 0);
+    for (std::size_t f = 1; f < films.size(); ++f)
+        mixed[f] = returns(f - 1) && returns(f);
+    return mixed;
+}
+
 /// What lies below each of these films at the start: the drawn shape, and the liner on it.
 geometry::FilmBases initial_bases(const Case& c) {
     std::vector<std::function<double(const Vec3&)>> below;
-    const std::size_t films = initial_films(c, 0).material.size();
+    const std::vector<int> materials = initial_films(c, 0).material;
+    const std::size_t films = materials.size();
     if (c.start) {
         below.assign(films, films > 0 ? start_distance(c.domain, *c.start) : nullptr);
-        return {c.domain, below, c.start->low, c.start->high};
+        return {c.domain, below, c.start->low, c.start->high, mixed_films(c, materials)};
     }
     for (std::size_t f = 0; f < films; ++f)
         below.push_back(
             geometry::initial_distance(c.domain, c.mask, f == 0 ? 0.0 : c.liner_thickness));
-    return {c.domain, below, 0, c.mask.thickness + c.liner_thickness};
+    return {c.domain, below, 0, c.mask.thickness + c.liner_thickness, mixed_films(c, materials)};
 }
 
 double highest(const Surface& surface) {

@@ -19,6 +19,7 @@ constexpr int max_newton_iterations = 12; ///< 4 to 8 are the rule
 constexpr int max_relaxation_steps = 400;
 constexpr double sticking_tolerance = 1e-6;
 constexpr double flux_tolerance = 1e-8;
+constexpr double by_product_tolerance = 1e-11; ///< of the arrivals: atoms are to be conserved
 
 double norm(const Vector& v) {
     double sum = 0;
@@ -27,25 +28,45 @@ double norm(const Vector& v) {
     return std::sqrt(sum);
 }
 
-/// The equations in units of the open fluxes, species after species: x[k * n + e].
+/// What the surface answers to arrivals, in the units of the problem.
+struct Answer {
+    Vector sticking;
+    Vector emitted; ///< empty without by-products
+    /// slope[(e * K + k) * K + l] = d(s_k x_k - emitted_k) / d(x_l) at element e
+    Vector slope;
+};
+
+/// The equations in units of the open fluxes, or of the largest emission of a by-product; species
+/// after species: x[k * n + e].
 class Problem {
 public:
-    Problem(const ExchangeOperator& exchange, std::vector<double> open, const StickingOf& sticking)
-        : exchange_(exchange), open_(std::move(open)), sticking_(sticking), n_(exchange.size()),
-          species_(open_.size()) {}
+    Problem(const ExchangeOperator& exchange, const std::vector<NeutralSupply>& supply,
+            const AnswerOf& answer)
+        : exchange_(exchange), answer_(answer), n_(exchange.size()), species_(supply.size()) {
+        for (const NeutralSupply& s : supply) {
+            unit_.push_back(s.open);
+            source_.push_back(1);
+            by_products_ = by_products_ || s.given_off;
+        }
+        if (by_products_) set_units(supply);
+    }
 
     std::size_t unknowns() const { return n_ * species_; }
     std::size_t species() const { return species_; }
     std::size_t elements() const { return n_; }
+    bool by_products() const { return by_products_; }
 
-    /// Sticking s and, if asked, loss[(e * K + k) * K + l] = d(s_k x_k) / d(x_l).
-    void evaluate(int batch, const Vector& x, Vector& s, Vector* loss) const {
-        s.resize(unknowns());
-        if (loss) loss->resize(n_ * species_ * species_);
+    /// The answer at x; slopes if asked.
+    Answer answer(int batch, const Vector& x, bool slopes) const {
+        Answer a;
+        a.sticking.resize(unknowns());
+        if (by_products_) a.emitted.resize(unknowns());
+        if (slopes) a.slope.resize(n_ * species_ * species_);
         tbb::parallel_for(tbb::blocked_range<std::size_t>(0, n_, 64), [&](const auto& range) {
             for (std::size_t e = range.begin(); e != range.end(); ++e)
-                at_element(e, batch, x, s, loss);
+                at_element(e, batch, x, a);
         });
+        return a;
     }
 
     /// out_k = A (in_k), every species.
@@ -54,101 +75,138 @@ public:
             exchange_.apply(batch, in.data() + k * n_, out.data() + k * n_);
     }
 
-    /// d + A (1 - s) x - x
-    Vector defect(int batch, const Vector& x, const Vector& s) const {
-        Vector emitted(unknowns()), out(unknowns());
+    /// source d + A ((1 - s) x + emitted) - x
+    Vector defect(int batch, const Vector& x, const Answer& a) const {
+        Vector leaving(unknowns()), out(unknowns());
         for (std::size_t i = 0; i < x.size(); ++i)
-            emitted[i] = (1 - s[i]) * x[i];
-        transport(batch, emitted, out);
+            leaving[i] = (1 - a.sticking[i]) * x[i];
+        for (std::size_t i = 0; i < a.emitted.size(); ++i)
+            leaving[i] += a.emitted[i];
+        transport(batch, leaving, out);
         const auto& direct = exchange_.direct(batch);
         for (std::size_t i = 0; i < x.size(); ++i)
-            out[i] += direct[i % n_] - x[i];
+            out[i] += source_[i / n_] * direct[i % n_] - x[i];
         return out;
     }
 
-    /// s and loss of the sticking (1 - share) before + share s.
-    void blend(const Vector& before, double share, Vector& s, Vector& loss) const {
-        for (double& part : loss)
+    /// The answer (1 - share) before + share a.
+    void blend(const Answer& before, double share, Answer& a) const {
+        for (double& part : a.slope)
             part *= share;
+        for (std::size_t i = 0; i < a.emitted.size(); ++i)
+            a.emitted[i] = (1 - share) * before.emitted[i] + share * a.emitted[i];
         for (std::size_t e = 0; e < n_; ++e)
             for (std::size_t k = 0; k < species_; ++k) {
                 const std::size_t i = k * n_ + e;
-                s[i] = (1 - share) * before[i] + share * s[i];
-                loss[(e * species_ + k) * species_ + k] += (1 - share) * before[i];
+                const double fixed = (1 - share) * before.sticking[i];
+                a.sticking[i] = fixed + share * a.sticking[i];
+                a.slope[(e * species_ + k) * species_ + k] += fixed;
             }
     }
 
-    /// Solves (I - A (I - loss)) step = defect; whether that went well.
-    bool newton_step(int batch, const Vector& loss, const Vector& defect, double tolerance,
+    /// Solves (I - A (I - slope)) step = defect; whether that went well.
+    bool newton_step(int batch, const Vector& slope, const Vector& defect, double tolerance,
                      Vector& step) const {
         step = defect;
-        Vector emitted(unknowns()), arrived(unknowns());
+        Vector leaving(unknowns()), arrived(unknowns());
         const std::size_t K = species_;
         const auto matrix = [&](const double* in, double* out) {
             for (std::size_t e = 0; e < n_; ++e)
                 for (std::size_t k = 0; k < K; ++k) {
                     double value = in[k * n_ + e];
                     for (std::size_t l = 0; l < K; ++l)
-                        value -= loss[(e * K + k) * K + l] * in[l * n_ + e];
-                    emitted[k * n_ + e] = value;
+                        value -= slope[(e * K + k) * K + l] * in[l * n_ + e];
+                    leaving[k * n_ + e] = value;
                 }
-            transport(batch, emitted, arrived);
+            transport(batch, leaving, arrived);
             for (std::size_t i = 0; i < arrived.size(); ++i)
                 out[i] = in[i] - arrived[i];
         };
         return solve_linear(matrix, defect, step, tolerance).converged;
     }
 
-    double open(std::size_t k) const { return open_[k]; }
+    double unit(std::size_t k) const { return unit_[k]; }
+    /// Least arrival allowed. An exact exchange spreads what arrives by parabolas, which may pass
+    /// below 0 where next to nothing arrives; other neutrals come from the open everywhere.
+    double least() const { return by_products_ ? -HUGE_VAL : 0; }
 
 private:
-    void at_element(std::size_t e, int batch, const Vector& x, Vector& s, Vector* loss) const {
+    /// By-products are measured by their largest emission where none of them or of the other
+    /// neutrals arrives, or the others as in the open.
+    void set_units(const std::vector<NeutralSupply>& supply) {
+        std::vector<double> largest(species_, 0.0);
+        const std::array<double, max_species> none{};
+        std::array<double, max_species> open{};
+        for (std::size_t k = 0; k < species_; ++k)
+            open[k] = supply[k].open;
+        for (std::size_t e = 0; e < n_; ++e)
+            for (const auto& neutrals : {none, open}) {
+                const NeutralAnswer a = answer_(int(e), -1, neutrals.data());
+                for (std::size_t k = 0; k < species_; ++k)
+                    largest[k] = std::max(largest[k], a.emitted[k]);
+            }
+        for (std::size_t k = 0; k < species_; ++k) {
+            if (!supply[k].given_off) continue;
+            unit_[k] = std::max(supply[k].open, largest[k]);
+            if (!(unit_[k] > 0)) unit_[k] = 1;
+            source_[k] = supply[k].open / unit_[k];
+        }
+    }
+
+    void at_element(std::size_t e, int batch, const Vector& x, Answer& a) const {
         std::array<double, max_species> neutrals{};
         for (std::size_t k = 0; k < species_; ++k)
-            neutrals[k] = open_[k] * x[k * n_ + e];
-        const auto here = sticking_(int(e), batch, neutrals.data());
+            neutrals[k] = std::max(unit_[k] * x[k * n_ + e], 0.0);
+        const NeutralAnswer here = answer_(int(e), batch, neutrals.data());
         for (std::size_t k = 0; k < species_; ++k)
-            s[k * n_ + e] = here[k];
-        if (!loss) return;
+            a.sticking[k * n_ + e] = here.sticking[k];
+        for (std::size_t k = 0; k < species_ && by_products_; ++k)
+            a.emitted[k * n_ + e] = here.emitted[k] / unit_[k];
+        if (a.slope.empty()) return;
         for (std::size_t l = 0; l < species_; ++l) {
             const double at = x[l * n_ + e], more = at + std::max(1e-6 * at, 1e-12);
             auto moved = neutrals;
-            moved[l] = open_[l] * more;
-            const auto there = sticking_(int(e), batch, moved.data());
+            moved[l] = std::max(unit_[l] * more, 0.0);
+            const NeutralAnswer there = answer_(int(e), batch, moved.data());
             for (std::size_t k = 0; k < species_; ++k) {
                 const double xk = x[k * n_ + e];
-                const double slope = (there[k] - here[k]) / (more - at) * xk;
-                (*loss)[(e * species_ + k) * species_ + l] = slope + (k == l ? there[k] : 0.0);
+                const double bend = (there.sticking[k] - here.sticking[k]) / (more - at) * xk;
+                double& slope = a.slope[(e * species_ + k) * species_ + l];
+                slope = bend + (k == l ? there.sticking[k] : 0.0);
+                if (by_products_)
+                    slope -= (there.emitted[k] - here.emitted[k]) / (unit_[k] * (more - at));
             }
         }
     }
 
     const ExchangeOperator& exchange_;
-    std::vector<double> open_;
-    const StickingOf& sticking_;
+    const AnswerOf& answer_;
+    std::vector<double> unit_, source_; ///< per species; source: open flux in these units
     std::size_t n_, species_;
+    bool by_products_ = false;
 };
 
 struct State {
-    Vector x, kinetic; ///< kinetic: the sticking that the kinetics answers
-    Vector s;          ///< the sticking that the neutrals meet
-    Vector loss, defect;
+    Vector x;
+    Answer kinetic; ///< what the kinetics answers, without slopes
+    Answer met;     ///< what the neutrals meet
+    Vector defect;
     double size = 0; ///< of the defect
 };
 
 /// Neutrals meet (1 - share) before + share (what the kinetics answers).
 struct Blend {
-    const Vector& before;
+    const Answer& before;
     double share;
 };
 
 State evaluate(const Problem& p, Vector x, const Blend& blend) {
     State state;
     state.x = std::move(x);
-    p.evaluate(-1, state.x, state.kinetic, &state.loss);
-    state.s = state.kinetic;
-    if (blend.share < 1) p.blend(blend.before, blend.share, state.s, state.loss);
-    state.defect = p.defect(-1, state.x, state.s);
+    state.met = p.answer(-1, state.x, true);
+    state.kinetic = {state.met.sticking, state.met.emitted, {}};
+    if (blend.share < 1) p.blend(blend.before, blend.share, state.met);
+    state.defect = p.defect(-1, state.x, state.met);
     state.size = norm(state.defect);
     return state;
 }
@@ -160,7 +218,7 @@ State backtrack(const Problem& p, const State& from, const Vector& step, const B
     for (double share = 1; share > 0.02; share *= 0.5) {
         Vector x = from.x;
         for (std::size_t i = 0; i < x.size(); ++i)
-            x[i] = std::max(x[i] + share * step[i], 0.0);
+            x[i] = std::max(x[i] + share * step[i], p.least());
         next = evaluate(p, std::move(x), blend);
         if (next.size <= from.size) break;
     }
@@ -174,11 +232,15 @@ double largest_change(const Vector& a, const Vector& b) {
     return change;
 }
 
+double largest_change(const Answer& a, const Answer& b) {
+    return std::max(largest_change(a.sticking, b.sticking), largest_change(a.emitted, b.emitted));
+}
+
 std::vector<Vector> by_species(const Problem& p, const Vector& x) {
     std::vector<Vector> flux(p.species(), Vector(p.elements()));
     for (std::size_t k = 0; k < p.species(); ++k)
         for (std::size_t e = 0; e < p.elements(); ++e)
-            flux[k][e] = p.open(k) * x[k * p.elements() + e];
+            flux[k][e] = std::max(p.unit(k) * x[k * p.elements() + e], 0.0);
     return flux;
 }
 
@@ -191,17 +253,18 @@ struct Newton {
 /// Newton's method from `state`, which is left where it ended.
 Newton newton(const Problem& p, State& state, const Blend& blend, double scale, int most) {
     Newton done;
+    const double goal = (p.by_products() ? by_product_tolerance : flux_tolerance) * scale;
     while (done.iterations < most) {
         RILLE_CHECK(std::isfinite(state.size), "kinetics gave a sticking that is not a number");
         // Nothing is gained by solving a step better than Newton's method squares its error.
         const double tolerance = std::clamp(1e-2 * state.size / scale, 1e-9, 1e-3);
         Vector step;
-        if (!p.newton_step(-1, state.loss, state.defect, tolerance, step)) return done;
+        if (!p.newton_step(-1, state.met.slope, state.defect, tolerance, step)) return done;
         State next = backtrack(p, state, step, blend);
-        done.change = largest_change(state.s, next.s);
+        done.change = largest_change(state.met, next.met);
         state = std::move(next);
         ++done.iterations;
-        done.converged = done.change < sticking_tolerance && state.size < flux_tolerance * scale;
+        done.converged = done.change < sticking_tolerance && state.size < goal;
         if (done.converged) break;
     }
     return done;
@@ -213,7 +276,7 @@ Newton newton(const Problem& p, State& state, const Blend& blend, double scale, 
 /// in it is small, and with fixed sticking the equations are linear. Returns the distance from
 /// rest.
 double relax(const Problem& p, State& state, double scale, int& iterations) {
-    Vector before = state.kinetic;
+    Answer before = state.kinetic;
     double pace = 0.25, longest = 1e4, rest = 1;
     for (int step = 0; step < max_relaxation_steps && rest > sticking_tolerance; ++step) {
         const Blend blend{before, pace / (1 + pace)};
@@ -225,8 +288,8 @@ double relax(const Problem& p, State& state, double scale, int& iterations) {
             pace *= 0.25;
             continue;
         }
-        rest = largest_change(next.kinetic, next.s);
-        before = next.s;
+        rest = largest_change(next.kinetic, next.met);
+        before = next.met;
         state = std::move(next);
         longest *= 1.05;
         pace = std::min(done.iterations <= 4 ? 2 * pace : pace, longest);
@@ -234,34 +297,40 @@ double relax(const Problem& p, State& state, double scale, int& iterations) {
     return rest;
 }
 
-/// Arrivals at the sticking of a surface that nothing has reached yet.
+/// `a` with slopes as if it did not change with the arrivals.
+void hold(const Problem& p, Answer& a) {
+    const Answer fixed = a;
+    a.slope.assign(p.unknowns() * p.species(), 0.0);
+    p.blend(fixed, 0, a);
+}
+
+/// Arrivals at the answer of a surface that nothing has reached yet.
 Vector arrivals_at_bare(const Problem& p) {
-    Vector x(p.unknowns(), 0.0), s, loss;
-    p.evaluate(-1, x, s, nullptr);
-    const Vector bare = s;
-    loss.assign(x.size() * p.species(), 0.0);
-    p.blend(bare, 0, s, loss);
+    const Vector x(p.unknowns(), 0.0);
+    Answer bare = p.answer(-1, x, false);
+    hold(p, bare);
     Vector step;
-    if (!p.newton_step(-1, loss, p.defect(-1, x, s), 1e-6, step)) step.assign(x.size(), 1.0);
+    if (!p.newton_step(-1, bare.slope, p.defect(-1, x, bare), 1e-6, step))
+        step.assign(x.size(), 1.0);
     return step;
 }
 
 } // namespace
 
-CoupledArrivals solve_coupled(const ExchangeOperator& exchange, const std::vector<double>& open,
-                              const StickingOf& sticking,
+CoupledArrivals solve_coupled(const ExchangeOperator& exchange,
+                              const std::vector<NeutralSupply>& supply, const AnswerOf& answer,
                               const std::vector<std::vector<double>>& guess) {
-    const Problem p(exchange, open, sticking);
+    const Problem p(exchange, supply, answer);
     const std::size_t n = p.elements();
     Vector x = arrivals_at_bare(p);
     for (std::size_t k = 0; k < guess.size() && k < p.species(); ++k)
-        for (std::size_t e = 0; e < n && guess[k].size() == n && open[k] > 0; ++e)
-            x[k * n + e] = guess[k][e] / open[k];
+        for (std::size_t e = 0; e < n && guess[k].size() == n && p.unit(k) > 0; ++e)
+            x[k * n + e] = guess[k][e] / p.unit(k);
     double scale = std::sqrt(double(p.species())) * norm(exchange.direct());
     scale = std::max(scale, 1e-300);
 
     CoupledArrivals result;
-    const Vector none;
+    const Answer none;
     const Blend kinetics_alone{none, 1};
     const State start = evaluate(p, std::move(x), kinetics_alone);
     State state = start;
@@ -280,22 +349,21 @@ CoupledArrivals solve_coupled(const ExchangeOperator& exchange, const std::vecto
     result.flux = by_species(p, state.x);
     result.batch_flux.resize(batches);
     tbb::parallel_for(0, batches, [&](int b) {
-        Vector s;
-        p.evaluate(b, state.x, s, nullptr);
-        const Vector defect = p.defect(b, state.x, s);
+        Answer own = p.answer(b, state.x, false);
+        const Vector defect = p.defect(b, state.x, own);
         if (norm(defect) < flux_tolerance * scale) { // no ray and no ion of its own
             result.batch_flux[b] = result.flux;
             return;
         }
-        Vector step, loss = state.loss;
-        if (!p.newton_step(b, loss, defect, 1e-4, step)) {
+        Vector step;
+        if (!p.newton_step(b, state.met.slope, defect, 1e-4, step)) {
             // Next to a change between two steady states: the answer at fixed sticking stands in.
-            p.blend(s, 0, s, loss);
-            RILLE_CHECK(p.newton_step(b, loss, defect, 1e-4, step), "transport of one batch");
+            hold(p, own);
+            RILLE_CHECK(p.newton_step(b, own.slope, defect, 1e-4, step), "transport of one batch");
         }
         Vector moved = state.x;
         for (std::size_t i = 0; i < moved.size(); ++i)
-            moved[i] = std::max(moved[i] + step[i], 0.0);
+            moved[i] = std::max(moved[i] + step[i], p.least());
         result.batch_flux[b] = by_species(p, moved);
     });
     return result;

@@ -51,6 +51,8 @@ struct Balance {
     PerCoverage deposit{}; ///< of a film onto itself
     PerCoverage film_density{};
     std::array<int, max_species> film_material{};
+    PerCoverage settling{}; ///< redeposits, onto any site
+    PerCoverage stripped{}; ///< redeposits, from a surface fully covered by this one
 };
 
 /// First pass: what every process adds to the balance.
@@ -78,6 +80,13 @@ struct Collect {
         b.film_density[p.coverage] = p.film_density;
         b.film_material[p.coverage] = p.film_material;
     }
+    void operator()(const Redeposition& p) const {
+        b.settling[p.coverage] += p.sticking * in.neutral(p.neutral);
+        for (const FilmRemoval& removal : p.removal)
+            b.stripped[p.coverage] += in.sum(removal.tallies);
+        b.film_density[p.coverage] = p.film_density;
+        b.film_material[p.coverage] = p.film_material;
+    }
     void operator()(const Recombination&) const {}
     void operator()(const PhysicalSputtering&) const {}
     void operator()(const SpontaneousEtching&) const {}
@@ -86,8 +95,9 @@ struct Collect {
 struct Coverage {
     PerCoverage theta{};
     double bare = 1.0;
-    int growing = -1;    ///< coverage whose film grows
-    double growth = 0.0; ///< [nm/s] >= 0
+    int growing = -1;     ///< coverage whose film grows
+    double growth = 0.0;  ///< [nm/s] >= 0
+    PerCoverage piling{}; ///< growth of redeposits [nm/s] >= 0
 };
 
 /// The fastest film with more deposited than removed covers everything.
@@ -134,6 +144,50 @@ Coverage solve(const Balance& b, int count) {
     return c;
 }
 
+/// Net growth g > 0 at which sum of settling / (g + stripped) is 1; that sum is convex in g and
+/// above 1 where the search starts, so Newton's method comes to the root from one side.
+double piling_speed(const Balance& b, int count) {
+    double all = 0.0, most_stripped = 0.0, g = 0.0;
+    for (int j = 0; j < count; ++j) {
+        if (!(b.settling[j] > 0.0)) continue;
+        all += b.settling[j];
+        most_stripped = std::fmax(most_stripped, b.stripped[j]);
+        g = std::fmax(g, b.settling[j] - b.stripped[j]);
+    }
+    g = std::fmax(g, all - most_stripped);
+    for (int i = 0; i < 200; ++i) {
+        double above = -1.0, slope = 0.0;
+        for (int j = 0; j < count; ++j) {
+            if (!(b.settling[j] > 0.0)) continue;
+            const double part = b.settling[j] / (g + b.stripped[j]);
+            above += part;
+            slope += part / (g + b.stripped[j]);
+        }
+        if (!(above > 1e-14)) break;
+        g += above / slope;
+    }
+    return g;
+}
+
+/// Redeposits lay themselves over everything else.
+void lay_redeposits(const Balance& b, int count, Coverage& c) {
+    double covered = 0.0;
+    for (int j = 0; j < count; ++j)
+        if (b.settling[j] > 0.0)
+            covered += b.stripped[j] > 0.0 ? b.settling[j] / b.stripped[j] : HUGE_VAL;
+    if (covered == 0.0) return;
+    const double speed = covered < 1.0 ? 0.0 : piling_speed(b, count);
+    const double left = covered < 1.0 ? 1.0 - covered : 0.0;
+    c.bare *= left;
+    c.growth *= left;
+    for (int j = 0; j < count; ++j) {
+        c.theta[j] *= left;
+        if (!(b.settling[j] > 0.0)) continue;
+        c.theta[j] = std::fmin(b.settling[j] / (speed + b.stripped[j]), 1.0);
+        c.piling[j] = speed * c.theta[j] / b.film_density[j];
+    }
+}
+
 /// Second pass: rates and sticking probabilities at the solved coverages.
 struct Act {
     Inputs in;
@@ -153,6 +207,10 @@ struct Act {
         }
         return not_film;
     }
+    void give_off(const Leavings& leaves, double units) const {
+        for (const Leaving& l : leaves)
+            r.emitted[l.neutral] += l.per_unit * units;
+    }
     void operator()(const Adsorption& p) const {
         r.sticking[p.neutral] += in.sticking(p.sticking, p.assistance) * c.bare;
     }
@@ -161,17 +219,21 @@ struct Act {
     }
     void operator()(const IonEnhancedEtching& p) const {
         r.by_ion_enhanced += in.sum(p.tallies) * c.theta[p.coverage] / density;
+        give_off(p.leaves, in.sum(p.tallies) * c.theta[p.coverage]);
     }
     void operator()(const PhysicalSputtering& p) const {
         r.by_sputtering += in.sum(p.tallies) * share(p.on) / density;
+        give_off(p.leaves, in.sum(p.tallies) * share(p.on));
     }
     void operator()(const SpontaneousEtching& p) const {
         const double reacted = in.probability(p.probability) * share(p.on);
         r.sticking[p.neutral] += reacted;
         r.by_spontaneous += reacted * in.neutral(p.neutral) / (p.atoms * density);
+        give_off(p.leaves, reacted * in.neutral(p.neutral) / p.atoms);
     }
     void operator()(const ThermalEtching& p) const {
         r.by_spontaneous += in.flux(p.flux) * c.theta[p.coverage] / (p.atoms * density);
+        give_off(p.leaves, in.flux(p.flux) * c.theta[p.coverage] / p.atoms);
     }
     void operator()(const NeutralRemoval& p) const {
         r.sticking[p.neutral] += in.probability(p.probability) * c.theta[p.coverage];
@@ -183,10 +245,48 @@ struct Act {
         r.by_deposition -= s * in.neutral(p.neutral) / p.film_density;
         r.grown_material = p.film_material;
     }
+    void operator()(const IonRemoval& p) const {
+        if (!p.leaves.empty()) give_off(p.leaves, in.sum(p.tallies) * c.theta[p.coverage]);
+    }
+    void operator()(const Redeposition& p) const {
+        r.sticking[p.neutral] += p.sticking;
+        for (const FilmRemoval& removal : p.removal)
+            give_off(removal.leaves, in.sum(removal.tallies) * c.theta[p.coverage]);
+    }
     void operator()(const IonAdsorption&) const {}
     void operator()(const Desorption&) const {}
-    void operator()(const IonRemoval&) const {}
 };
+
+/// The film for which most comes to stay of what surfaces gave off, or -1.
+int settling_film(const Mechanism& m, const SurfaceChemistry& surface, const Inputs& in) {
+    int material = -1;
+    double most = 0.0;
+    const auto compare = [&](int neutral, double sticking, double density, int film) {
+        const double speed = sticking * in.neutral(neutral) / density;
+        if (!(speed > most)) return;
+        most = speed;
+        material = film;
+    };
+    for (const SurfaceProcess& process : surface.processes) {
+        if (const auto* r = std::get_if<Redeposition>(&process))
+            compare(r->neutral, r->sticking, r->film_density, r->film_material);
+        const auto* d = std::get_if<Deposition>(&process);
+        if (d && d->coverage < 0 && m.gives_off(d->neutral))
+            compare(d->neutral, d->sticking, d->film_density, d->film_material);
+    }
+    return material;
+}
+
+/// What redeposits add to the growth, and which film grows fastest.
+void pile_up(const Balance& b, const Coverage& c, int count, SurfaceResponse& r) {
+    double fastest = -r.by_deposition;
+    for (int j = 0; j < count; ++j) {
+        r.by_deposition -= c.piling[j];
+        if (!(c.piling[j] > fastest)) continue;
+        fastest = c.piling[j];
+        r.grown_material = b.film_material[j];
+    }
+}
 
 } // namespace
 
@@ -200,7 +300,8 @@ SurfaceResponse respond(const Mechanism& mechanism, int material, const LocalArr
     Balance balance;
     for (const SurfaceProcess& p : surface.processes)
         std::visit(Collect{in, balance}, p);
-    const Coverage c = solve(balance, count);
+    Coverage c = solve(balance, count);
+    lay_redeposits(balance, count, c);
     double not_film = 1.0;
     for (int j = 0; j < count; ++j) {
         r.coverage[j] = c.theta[j];
@@ -215,22 +316,43 @@ SurfaceResponse respond(const Mechanism& mechanism, int material, const LocalArr
         r.by_deposition -= c.growth;
         r.grown_material = balance.film_material[c.growing];
     }
+    pile_up(balance, c, count, r);
     for (double& s : r.sticking)
         s = std::fmin(s, 1.0);
     r.rate = r.by_ion_enhanced + r.by_sputtering + r.by_spontaneous + r.by_deposition;
     if (!(r.rate < 0.0)) r.grown_material = -1;
+    if (!mechanism.cosine_power.empty())
+        r.settling_material = settling_film(mechanism, surface, in);
     return r;
 }
 
-std::vector<int> deposited_materials(const Mechanism& mechanism) {
+namespace {
+
+std::vector<int> film_materials(const Mechanism& mechanism, bool of_by_products_only) {
     std::vector<int> found;
     for (const SurfaceChemistry& surface : mechanism.surfaces)
-        for (const SurfaceProcess& process : surface.processes)
-            if (const auto* deposition = std::get_if<Deposition>(&process))
-                if (deposition->film_material >= 0) found.push_back(deposition->film_material);
+        for (const SurfaceProcess& process : surface.processes) {
+            const auto* deposition = std::get_if<Deposition>(&process);
+            if (deposition && deposition->film_material >= 0 &&
+                (!of_by_products_only ||
+                 (deposition->coverage < 0 && mechanism.gives_off(deposition->neutral))))
+                found.push_back(deposition->film_material);
+            if (const auto* redeposition = std::get_if<Redeposition>(&process))
+                found.push_back(redeposition->film_material);
+        }
     std::sort(found.begin(), found.end());
     found.erase(std::unique(found.begin(), found.end()), found.end());
     return found;
+}
+
+} // namespace
+
+std::vector<int> deposited_materials(const Mechanism& mechanism) {
+    return film_materials(mechanism, false);
+}
+
+std::vector<int> redeposited_materials(const Mechanism& mechanism) {
+    return film_materials(mechanism, true);
 }
 
 } // namespace rille::fluxes

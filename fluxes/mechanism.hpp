@@ -40,6 +40,9 @@ struct Mechanism {
     std::string name;
     std::vector<std::string> ions;
     std::vector<std::string> neutrals; ///< at most max_species
+    /// Per neutral: n of the law cos^n about the normal by which surfaces give it off as a
+    /// by-product; 0 where none does. Empty: no by-products at all.
+    std::vector<double> cosine_power;
     std::vector<Tally> tallies;
     std::vector<SurfaceChemistry> surfaces; ///< index = material id of the run
 
@@ -49,6 +52,10 @@ struct Mechanism {
     Mechanism& operator=(const Mechanism&);
     Mechanism(Mechanism&&) noexcept;
     Mechanism& operator=(Mechanism&&) noexcept;
+
+    bool gives_off(std::size_t neutral) const {
+        return neutral < cosine_power.size() && cosine_power[neutral] > 0;
+    }
 };
 
 /// What arrives at one place. Pointers are valid for the call only.
@@ -62,15 +69,18 @@ struct LocalArrivals {
 struct SurfaceResponse {
     double rate = 0;         ///< [nm/s] > 0 etching, < 0 growth of grown_material
     int grown_material = -1; ///< material id of the film that grows, or -1
+    int settling_material =
+        -1; ///< film that most of the returning by-products would build up, or -1
     std::array<double, max_species>
         sticking{}; ///< probability that an impinging neutral stays, [0, 1]
+    std::array<double, max_species> emitted{};  ///< by-products given off [nm^-2 s^-1]
     std::array<double, max_species> coverage{}; ///< per coverage of the material, [0, 1]
     double by_ion_enhanced = 0;                 ///< parts of the rate [nm/s]
     double by_sputtering = 0;
     double by_spontaneous = 0;
     double by_deposition = 0; ///< <= 0
     double bare = 1;          ///< share of the surface without adsorbates
-    double outside_films = 1; ///< share of the surface outside films that a Deposition builds up
+    double outside_films = 1; ///< share of the surface outside grown films
 };
 
 SurfaceResponse respond(const Mechanism&, int material, const LocalArrivals&);

@@ -30,6 +30,13 @@ struct SurfacePart {
 /// Indices into Mechanism::tallies whose sum drives an ion process [nm^-2 s^-1].
 using Tallies = std::vector<int>;
 
+/// A by-product that a process gives off with what it removes.
+struct Leaving {
+    int neutral = 0;
+    double per_unit = 1; ///< of it for each unit removed
+};
+using Leavings = std::vector<Leaving>;
+
 /// Multiplies a sticking probability by 1 + eta * (sum of tallies), at most to 1.
 struct IonAssistance {
     double eta = 0; ///< [nm^2 s]
@@ -66,11 +73,13 @@ struct IonEnhancedEtching {
     int coverage = 0;
     double atoms = 1;
     Tallies tallies;
+    Leavings leaves{};
 };
 /// Target units sputtered by ions.
 struct PhysicalSputtering {
     SurfacePart on;
     Tallies tallies;
+    Leavings leaves{};
 };
 /// An impinging neutral reacts and takes 1 / `atoms` target units along.
 struct SpontaneousEtching {
@@ -78,6 +87,7 @@ struct SpontaneousEtching {
     Arrhenius probability;
     double atoms = 1;
     SurfacePart on;
+    Leavings leaves{};
 };
 /// Adsorbed atoms react with the target by heat: flux of atoms from a fully covered surface
 /// [nm^-2 s^-1]; `atoms` of them take one target unit along.
@@ -85,11 +95,13 @@ struct ThermalEtching {
     int coverage = 0;
     Arrhenius flux;
     double atoms = 1;
+    Leavings leaves{};
 };
 /// Ions remove adsorbed atoms (or units of a film) without etching. The tallies count them.
 struct IonRemoval {
     int coverage = 0;
     Tallies tallies;
+    Leavings leaves{};
 };
 /// An impinging neutral removes `atoms` adsorbed atoms from where it strikes the coverage.
 struct NeutralRemoval {
@@ -111,9 +123,29 @@ struct Deposition {
     IonAssistance assistance;
 };
 
-using SurfaceProcess = std::variant<Adsorption, IonAdsorption, Desorption, Recombination,
-                                    IonEnhancedEtching, PhysicalSputtering, SpontaneousEtching,
-                                    ThermalEtching, IonRemoval, NeutralRemoval, Deposition>;
+/// Ions that take a redeposited film away again: the tallies count its units.
+struct FilmRemoval {
+    Tallies tallies;
+    Leavings leaves;
+};
+/// A neutral that sticks on any site and builds up as a film of another material. While ions remove
+/// more than arrives, films cover the shares (arriving / removed from a fully covered surface) and
+/// leave the rest to the other processes; otherwise they cover everything and grow, mixed as they
+/// pile up: each covers arriving / (g + removed), where the sum of those shares, 1, gives the net
+/// growth g in units. Source: balance of atoms, derived here.
+struct Redeposition {
+    int neutral = 0;
+    int coverage = 0;
+    double sticking = 0;
+    double film_density = 0; ///< film units [nm^-3]
+    int film_material = -1;  ///< id in the run's material list
+    std::vector<FilmRemoval> removal;
+};
+
+using SurfaceProcess =
+    std::variant<Adsorption, IonAdsorption, Desorption, Recombination, IonEnhancedEtching,
+                 PhysicalSputtering, SpontaneousEtching, ThermalEtching, IonRemoval, NeutralRemoval,
+                 Deposition, Redeposition>;
 
 /// One material: adsorbates compete for one lattice of sites in quasi-steady balance,
 ///   (gain_j) theta_0 = (loss_j) theta_j,   theta_0 = 1 - sum theta_j,
@@ -128,5 +160,7 @@ struct SurfaceChemistry {
 
 /// Material ids of the films that the mechanism can build up, ascending, each once.
 std::vector<int> deposited_materials(const Mechanism&);
+/// Those of them that by-products build up, by Redeposition or on the film itself.
+std::vector<int> redeposited_materials(const Mechanism&);
 
 } // namespace rille::fluxes

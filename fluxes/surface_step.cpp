@@ -213,15 +213,16 @@ CoupledArrivals gather_neutrals(const Setting& s, const IonArrivals& ions,
     CoupledArrivals none;
     none.batch_flux.resize(batches);
     if (s.sources.neutrals.empty()) return none;
-    std::vector<double> open;
+    std::vector<NeutralSupply> supply;
     for (const NeutralSource& source : s.sources.neutrals)
-        open.push_back(source.flux);
+        supply.push_back({source.flux, s.mechanism.gives_off(supply.size())});
     const std::unique_ptr<ExchangeOperator> exchange = exchange_of(s, inexact);
-    const StickingOf sticking = [&](int e, int batch, const double* neutrals) {
-        return s.respond_at(s.outermost(e), ions.at(e, batch), neutrals).sticking;
+    const AnswerOf answer = [&](int e, int batch, const double* neutrals) {
+        const SurfaceResponse r = s.respond_at(s.outermost(e), ions.at(e, batch), neutrals);
+        return NeutralAnswer{r.sticking, r.emitted};
     };
     static const std::vector<std::vector<double>> nothing;
-    return solve_coupled(*exchange, open, sticking, previous ? previous->neutral : nothing);
+    return solve_coupled(*exchange, supply, answer, previous ? previous->neutral : nothing);
 }
 
 std::array<double, max_species> at_element(const std::vector<std::vector<double>>& flux, int e) {
@@ -297,7 +298,7 @@ void respond_everywhere(const Setting& s, const IonArrivals& ions,
         const auto neutrals = at_element(step.neutral, e);
         const SurfaceResponse r = s.respond_at(material, ions.at(e, -1), neutrals.data());
         step.response[e] = r;
-        if (r.rate < 0) step.growth_material[e] = r.grown_material;
+        step.growth_material[e] = r.rate < 0 ? r.grown_material : r.settling_material;
         const std::size_t paths = std::size_t(e) * ion_paths * ions.tallies;
         if (causes) {
             put(cause_rates(s.mechanism, material, r, &ions.by_path[paths]), e, step.cause);

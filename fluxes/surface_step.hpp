@@ -73,7 +73,9 @@ struct SurfaceStep {
     std::shared_ptr<const SurfaceDetail> detail; ///< null unless Sampling::detailed
     /// rate_batch[b][e]: the rate had only batch b been used; their spread is the sampling error.
     std::vector<std::vector<double>> rate_batch;
-    std::vector<int> growth_material; ///< film material that grows on the element, or -1
+    /// Film material that grows on the element, or, of by-products, would grow at a normal that
+    /// ions strike less; or -1.
+    std::vector<int> growth_material;
     /// Ion tables of the plasma state: the next step with the same ions takes them from here.
     std::shared_ptr<const IonTables> ion_tables;
     int iterations = 0;  ///< of transport and kinetics against each other

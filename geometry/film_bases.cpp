@@ -18,12 +18,24 @@ constexpr double thick = 1.5;     ///< [cells] thicker films are read off their 
 constexpr double tolerance = 0.5; ///< [cells] what was carried of thinner ones may be off by
 constexpr double deep = 2.5;      ///< [cells] a base is not touched farther inside the front
 
+/// Gives films deepest to last, together `before` thick at element e, the thickness `now`.
+void share_out(GrownFilms& films, int deepest, int last, std::size_t e, double before, double now) {
+    for (int f = deepest; f <= last; ++f) {
+        double& thickness = films.thickness[f][e];
+        if (deepest == last)
+            thickness = now;
+        else
+            thickness = before > 0 ? thickness * (now / before) : f == deepest ? now : 0.0;
+    }
+}
+
 } // namespace
 
 FilmBases::FilmBases(const Domain& domain,
                      const std::vector<std::function<double(const Vec3&)>>& below, double z_low,
-                     double z_high)
-    : domain_(domain), reach_(static_cast<float>(known * domain.spacing)) {
+                     double z_high, std::vector<char> mixed)
+    : domain_(domain), reach_(static_cast<float>(known * domain.spacing)),
+      mixed_(std::move(mixed)) {
     const int k_low = static_cast<int>(std::floor((z_low - reach_) / domain.spacing)) - 1;
     const int k_high = static_cast<int>(std::ceil((z_high + reach_) / domain.spacing)) + 1;
     for (const auto& distance : below) {
@@ -113,7 +125,10 @@ int FilmBases::settle(const Front& front, const Surface& surface, GrownFilms& fi
         const double own = front.distance(surface.centre[e]);
         double above = 0, carried_above = 0; // thickness of the films on top of film f
         for (int f = static_cast<int>(grids_.size()) - 1; f >= 0; --f) {
-            double& thickness = films.thickness[f][e];
+            const int last = f;
+            double thickness = films.thickness[f][e];
+            for (; f > 0 && mixes(f); --f)
+                thickness += films.thickness[f - 1][e];
             const double carried = carried_above + thickness;
             const double found = thickness_at(f, surface.centre[e], own);
             const bool beyond = found > trusted * h && carried > trusted * h;
@@ -121,7 +136,7 @@ int FilmBases::settle(const Front& front, const Surface& surface, GrownFilms& fi
                                          std::fabs(found - carried) > tolerance * h);
             const double total = std::max(above, off ? found : carried);
             if (off || above != carried_above) {
-                thickness = total - above;
+                share_out(films, f, last, e, thickness, total - above);
                 ++changed;
             }
             above = total;

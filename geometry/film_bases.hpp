@@ -20,14 +20,17 @@ class FilmBases {
 public:
     /// below[f](p) [nm]: signed distance at the start to the solid below film f of GrownFilms, < 0
     /// in it, exact within 4 cells. z_low and z_high [nm] bound the surfaces of all of them.
+    /// mixed[f]: film f grows mixed with film f - 1, on one base, that of the deepest; none if
+    /// empty.
     FilmBases(const Domain&, const std::vector<std::function<double(const Vec3&)>>& below,
-              double z_low, double z_high);
+              double z_low, double z_high, std::vector<char> mixed = {});
 
     /// After the front has moved: bases recede where it has passed into them.
     void follow(const Front&);
     /// On the elements of `surface`, the front's present one, distances to the bases replace what
     /// was carried of films thicker than 1.5 cells, and of thinner ones where it is off by more
-    /// than half a cell. Returns how many thicknesses were replaced.
+    /// than half a cell; films that grow mixed keep their proportions. Returns how many thicknesses
+    /// were replaced.
     int settle(const Front&, const Surface& surface, GrownFilms&) const;
     /// Distance [nm] from p to the solid below film f, interpolated; clamped to +-4 cells.
     double distance(int film, const Vec3& p) const;
@@ -48,11 +51,13 @@ private:
     };
     double value(const Grid&, int i, int j, int k) const;
     double thickness_at(int film, const Vec3& p, double own) const;
+    bool mixes(int film) const { return film < int(mixed_.size()) && mixed_[film]; }
     float& slot(Grid&, int i, int j, int k);
 
     Domain domain_;
     float reach_; ///< [nm]
     std::vector<Grid> grids_;
+    std::vector<char> mixed_;
 };
 
 } // namespace rille::geometry

@@ -151,10 +151,11 @@ TEST_CASE("a conformal liner is opened first", "[validation][events]") {
     CHECK(lined > bare * 1.2);
     CHECK(thick - bare == Approx(2 * (lined - bare)).epsilon(1e-6));
     // In the trench, of which the liner leaves 26 nm open, ions of small spread all arrive, and
-    // those that the walls reflect only add to them.
+    // those that the walls reflect only add to them: a sixth, as what settles on the walls makes
+    // them lean into the beam (3 % without that).
     const double inside = time_of("liner: {material: Si3N4, thickness: 3 nm}", "trench centre");
     CHECK(inside < 1.01 * lined);
-    CHECK(inside > 0.85 * lined);
+    CHECK(inside > 0.8 * lined);
 }
 
 // Oracle: a liner five cells thick that is opened at the floor stays on the walls; where its face
