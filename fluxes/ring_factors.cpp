@@ -162,9 +162,9 @@ double RoundProfile::by_horizons(const RingPoint& from, int place) const {
         const double azimuth = first + (half_turn - first) * part;
         const double cosine = std::cos(azimuth), sine = std::sin(azimuth);
         double low = 0, high = HUGE_VAL; // tangents of the angle from the vertical
-        for (int k = place + 1; k <= rim_; ++k) {
-            const double rise = point_[k].z - from.at.z;
-            const double root2 = point_[k].x * point_[k].x - r * r * sine * sine;
+        for (std::size_t k = bore_before_[place + 1]; k < bore_points_.size(); ++k) {
+            const double rise = bore_points_[k].z - from.at.z;
+            const double root2 = bore_points_[k].x * bore_points_[k].x - r * r * sine * sine;
             if (!(rise > 0)) continue;
             if (!(root2 > 0)) {
                 high = -1;
