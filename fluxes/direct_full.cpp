@@ -112,23 +112,32 @@ public:
             join_kernel(tally);
     }
 
+    /// Group after group, so that unaveraged rows are held of one group only.
     DirectIons::Gathered run() {
         const std::size_t count = surface_.size(), angles = cosine_.size();
-        std::vector<std::vector<double>> group_flux(groups_.size(), std::vector<double>(count));
         gathered_.rays_per_batch = per_batch_;
         gathered_.group_of = group_of_;
-        gathered_.seen.assign(groups_.size(),
-                              std::vector<DirectIons::SeenRay>(count * batches * per_batch_));
-        raw_row_.assign(kernels_.size(), std::vector<float>(count * angles));
-        raw_batch_.assign(kernels_.size(), std::vector<double>(count * batches));
-        over_elements([&](int e) {
-            for (std::size_t g = 0; g < groups_.size(); ++g)
-                tabulate(static_cast<int>(g), e, trace(static_cast<int>(g), e, group_flux[g][e]));
-        });
-        gathered_.row.assign(kernels_.size(), std::vector<float>(count * angles));
+        gathered_.seen.resize(groups_.size());
+        gathered_.row.resize(kernels_.size());
         gathered_.tally.assign(tables_.tallies().size(), std::vector<double>(count));
         gathered_.batch.assign(tables_.tallies().size(), std::vector<double>(count * batches));
-        over_elements([&](int e) { average(e); });
+        std::vector<std::vector<double>> group_flux(groups_.size(), std::vector<double>(count));
+        raw_row_.resize(kernels_.size());
+        raw_batch_.resize(kernels_.size());
+        for (int g = 0; g < static_cast<int>(groups_.size()); ++g) {
+            gathered_.seen[g].resize(count * batches * per_batch_);
+            for_kernels(g, [&](std::size_t n) {
+                raw_row_[n].assign(count * angles, 0);
+                raw_batch_[n].assign(count * batches, 0);
+                gathered_.row[n].resize(count * angles);
+            });
+            over_elements([&](int e) { tabulate(g, e, trace(g, e, group_flux[g][e])); });
+            over_elements([&](int e) { average(g, e); });
+            for_kernels(g, [&](std::size_t n) {
+                std::vector<float>().swap(raw_row_[n]);
+                std::vector<double>().swap(raw_batch_[n]);
+            });
+        }
         for (std::size_t s = 0; s < group_of_.size(); ++s) {
             gathered_.flux.push_back(group_flux[group_of_[s]]);
             for (double& flux : gathered_.flux.back())
@@ -145,6 +154,12 @@ private:
                               for (int e = range.begin(); e != range.end(); ++e)
                                   work(e);
                           });
+    }
+
+    template <class Work>
+    void for_kernels(int group, const Work& work) const {
+        for (std::size_t n = 0; n < kernels_.size(); ++n)
+            if (kernels_[n].group == group) work(n);
     }
 
     void join_group(int ion) {
@@ -307,38 +322,42 @@ private:
 
     /// Averages over the surroundings: a wall takes so little of the beam that the noise of one
     /// element's directions would roughen it.
-    void average(int e) {
+    void average(int group, int e) {
         const std::size_t angles = cosine_.size();
-        std::vector<double> row(angles), own(kernels_.size());
-        std::vector<std::array<double, batches>> batch(kernels_.size());
-        for (std::size_t n = 0; n < kernels_.size(); ++n) {
+        std::vector<double> row(angles);
+        std::array<double, batches> batch;
+        for_kernels(group, [&](std::size_t n) {
             std::fill(row.begin(), row.end(), 0.0);
-            batch[n].fill(0.0);
+            batch.fill(0.0);
             for (int i = average_.first[e]; i < average_.first[e + 1]; ++i) {
                 const auto [f, weight] = average_.parts[i];
                 const float* from = raw_row_[n].data() + std::size_t(f) * angles;
                 for (std::size_t k = 0; k < angles; ++k)
                     row[k] += weight * from[k];
                 for (int b = 0; b < batches; ++b)
-                    batch[n][b] += weight * raw_batch_[n][std::size_t(f) * batches + b];
+                    batch[b] += weight * raw_batch_[n][std::size_t(f) * batches + b];
             }
             float* to = gathered_.row[n].data() + std::size_t(e) * angles;
             for (std::size_t k = 0; k < angles; ++k)
                 to[k] = static_cast<float>(row[k]);
-            own[n] = on_row(tables_.angles(), to, own_angle(e));
+            const double own = on_row(tables_.angles(), to, own_angle(e));
             // Batches spread about the same mean.
             double mean = 0;
-            for (const double value : batch[n])
+            for (const double value : batch)
                 mean += value / batches;
-            for (double& value : batch[n])
-                value = mean > 0 ? value * own[n] / mean : own[n];
-        }
+            for (double& value : batch)
+                value = mean > 0 ? value * own / mean : own;
+            add_tallies(static_cast<int>(n), e, own, batch);
+        });
+    }
+
+    /// Files what a kernel gives at an element's own normal under the tallies that it stands for.
+    void add_tallies(int kernel, int e, double own, const std::array<double, batches>& batch) {
         for (std::size_t m = 0; m < gathered_.row_of.size(); ++m) {
-            const int n = gathered_.row_of[m];
-            gathered_.tally[m][e] = gathered_.factor[m] * own[n];
+            if (gathered_.row_of[m] != kernel) continue;
+            gathered_.tally[m][e] = gathered_.factor[m] * own;
             for (int b = 0; b < batches; ++b)
-                gathered_.batch[m][std::size_t(e) * batches + b] =
-                    gathered_.factor[m] * batch[n][b];
+                gathered_.batch[m][std::size_t(e) * batches + b] = gathered_.factor[m] * batch[b];
         }
     }
 

@@ -53,6 +53,11 @@ double DirectIons::flux(int s, int element) const {
     return gathered_.flux[s][element];
 }
 
+void DirectIons::forget_rays() {
+    gathered_.seen = {};
+    gathered_.batch = {};
+}
+
 DirectIons::SkyRay DirectIons::ray(const geometry::Surface& surface, int ion, int element,
                                    int batch, int k) const {
     return sky_ray(surface, tables_->ions()[ion].distribution, options_, element,

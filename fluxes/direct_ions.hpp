@@ -74,6 +74,8 @@ public:
         return gathered_.seen[gathered_.group_of[ion]].data() +
                std::size_t(element) * 8 * gathered_.rays_per_batch;
     }
+    /// Gives back the memory of seen() and of tally_batch(), which then may not be called.
+    void forget_rays();
     /// Ray k of a batch again. `surface` is the one that the flux was gathered on.
     SkyRay ray(const geometry::Surface& surface, int ion, int element, int batch, int k) const;
 

@@ -76,23 +76,27 @@ public:
         const std::size_t slots = tallies_.size() * surface_.size();
         const bool apart = options_.bounces_by_batch;
         result.value.assign(batches, std::vector<double>(slots, 0.0));
-        result.by_bounces.assign(apart ? batches : 1, std::vector<double>(bounce_classes * slots));
+        if (options_.bounces)
+            result.by_bounces.assign(apart ? batches : 1,
+                                     std::vector<double>(bounce_classes * slots));
         std::vector<double> up(surface_.size(), 0.0), along(surface_.size(), 0.0);
         double lost = 0, incident = 0;
         for (const IonSource& ion : ions_)
             incident += ion.flux * domain_.base_area();
-        for (const Chunk& chunk : chunks) {
-            std::vector<double>& bounces = result.by_bounces[apart ? chunk.batch : 0];
+        for (Chunk& chunk : chunks) {
             const double share = apart ? 1.0 : 1.0 / batches;
             for (const Deposit& d : chunk.deposits) {
                 result.value[chunk.batch][d.slot % slots] += d.value;
-                bounces[d.slot] += share * d.value;
+                if (options_.bounces)
+                    result.by_bounces[apart ? chunk.batch : 0][d.slot] += share * d.value;
             }
             for (const Origin& o : chunk.origins) {
                 up[o.element] += o.up;
                 along[o.element] += o.along;
             }
             lost += chunk.lost / batches;
+            std::vector<Deposit>().swap(chunk.deposits);
+            std::vector<Origin>().swap(chunk.origins);
         }
         result.from_angle = angles_of(up, along);
         if (options_.averaged) {

@@ -37,6 +37,7 @@ struct ReflectionOptions {
     /// Tallies averaged over the surroundings like the direct ones: over about five cells of
     /// surface, never across a corner, sums kept.
     bool averaged = true;
+    bool bounces = true;           ///< whether ReflectedIons::by_bounces is filled
     bool bounces_by_batch = false; ///< ReflectedIons::by_bounces of each batch
 };
 

@@ -57,7 +57,7 @@ struct IonArrivals {
     std::optional<DirectIons> direct;
     int tallies = 0;             ///< of the mechanism
     std::vector<int> counts_for; ///< tally of the mechanism that each one of `direct` adds to
-    std::vector<double> by_path; ///< [(element * ion_paths + path) * tallies + m]
+    std::vector<double> by_path; ///< [(element * ion_paths + path) * tallies + m], if asked for
     std::vector<std::vector<double>> by_path_batch; ///< [batch], where they are asked for
     std::vector<double> reflected;                  ///< [element][tally], mean over batches
     std::vector<double> reflected_from;             ///< ReflectedIons::from_angle, or empty
@@ -115,7 +115,8 @@ struct Setting {
 /// Everything that comes to element e, by path and together.
 void add_up(const ReflectedIons& bounced, std::size_t elements, int e, IonArrivals& ions) {
     const std::size_t m = ions.tallies, all = ions.counts_for.size();
-    double* paths = ions.by_path.data() + std::size_t(e) * ion_paths * m;
+    double* paths =
+        ions.by_path.empty() ? nullptr : ions.by_path.data() + std::size_t(e) * ion_paths * m;
     for (std::size_t t = 0; t < all; ++t) {
         const std::size_t own = ions.counts_for[t], i = e * m + own;
         const auto path = [&](int p) { return (t < m ? p : ion_paths - 1) * m + own; };
@@ -124,6 +125,7 @@ void add_up(const ReflectedIons& bounced, std::size_t elements, int e, IonArriva
             ions.reflected[i] += part / batches;
             ions.batch[b][i] += part + ions.direct->tally_batch(b, int(t), e);
         }
+        if (!paths) continue;
         paths[path(0)] += ions.direct->tally(int(t), e);
         for (int k = 0; k < bounce_classes && !bounced.value.empty(); ++k)
             for (const auto& one : bounced.by_bounces)
@@ -151,8 +153,9 @@ IonArrivals gather_ions(const Setting& s, const std::vector<IonReflection>& refl
     ions.reflected.assign(n * m, 0);
     ions.total.assign(n * m, 0);
     ions.batch.assign(batches, std::vector<double>(n * m, 0));
-    ions.by_path.assign(n * ion_paths * m, 0);
     const Sampling& sampling = s.sampling;
+    const bool paths = sampling.detailed || sampling.causes;
+    if (paths) ions.by_path.assign(n * ion_paths * m, 0);
     if (sampling.detailed) ions.by_path_batch.assign(batches, ions.by_path);
     if (s.sources.ions.empty()) return ions;
     AllSources all(s.mechanism, s.sources);
@@ -177,12 +180,14 @@ IonArrivals gather_ions(const Setting& s, const std::vector<IonReflection>& refl
         // Fast neutrals share the ions' number.
         options.ions_per_species =
             static_cast<int>(options.ions_per_species * s.sources.ions.size() / species);
+        options.bounces = paths;
         options.bounces_by_batch = sampling.detailed;
         bounced = trace_reflected(s.domain, s.surface, s.caster, material, *ions.direct, reflection,
                                   options);
     }
     for_elements(n, [&](int e) { add_up(bounced, n, e, ions); });
     ions.reflected_from = std::move(bounced.from_angle);
+    ions.direct->forget_rays();
     return ions;
 }
 
