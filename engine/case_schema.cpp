@@ -257,10 +257,10 @@ Rule make_case_rules() {
                   "when arrivals, coverages and rates with their causes are written along the "
                   "surface"),
          map_rule("sampling",
-                  {quantity_rule("renew_after", D::share, {0, 1, true, false},
+                  {quantity_rule("renew_after", D::share, {0, 4, true, false},
                                  "share of a cell that the front moves before arrivals are traced "
-                                 "again; smaller is slower")
-                       .by_default("50 %"),
+                                 "again, less where they change fast; smaller is slower; 50 %, in "
+                                 "revolved 200 % if not given"),
                    integer_rule("rays_per_point", {8, 1048576},
                                 "rays from each surface point for neutrals, a multiple of 8")
                        .by_default("64"),

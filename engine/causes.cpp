@@ -39,6 +39,20 @@ std::vector<std::string> supply_names(const Case& c) {
     return names;
 }
 
+const char* face_name(ShapePart::Face face) {
+    switch (face) {
+    case ShapePart::Face::left_wall:
+        return "left wall";
+    case ShapePart::Face::right_wall:
+        return "right wall";
+    case ShapePart::Face::wall:
+        return "wall";
+    case ShapePart::Face::floor:
+        break;
+    }
+    return "floor";
+}
+
 const char* region_of(const Case& c, const geometry::Surface& s, std::size_t element,
                       bool is_image) {
     const geometry::Vec3 n = s.normal[element];

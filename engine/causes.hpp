@@ -1,6 +1,7 @@
 // SPDX-License-Identifier: Apache-2.0
 #pragma once
 
+#include "engine/shape_ledger.hpp"
 #include "fluxes/causes.hpp"
 #include "geometry/surface.hpp"
 
@@ -25,6 +26,9 @@ const std::array<CauseLook, fluxes::cause_count>& cause_looks();
 /// Names of the supplies of a case in the order of SurfaceStep::supply: "direct_ions",
 /// "ions_after_1_bounce", ..., then the neutrals.
 std::vector<std::string> supply_names(const Case&);
+
+/// "left wall", "right wall", "wall" or "floor".
+const char* face_name(ShapePart::Face);
 
 /// Where an element of the surface lies: "top" (facing up, at the mask bottom or above), "floor",
 /// "left wall" and "right wall" of the gas beside it (steeper than 60 deg from horizontal), or

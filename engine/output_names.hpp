@@ -8,6 +8,10 @@ inline constexpr const char* resolved_case = "case.yaml";
 inline constexpr const char* record = "run.json";
 inline constexpr const char* history = "history.csv";
 inline constexpr const char* profile = "profile.csv";
+/// What each cause has removed, and its picture.
+inline constexpr const char* causes = "causes.csv";
+inline constexpr const char* causes_svg = "causes.svg";
+inline constexpr const char* causes_png = "causes.png";
 /// Arrivals and causes along the surface at chosen times: TIMEs.csv in this folder.
 inline constexpr const char* arc_data = "arc_data";
 inline constexpr const char* metrics = "metrics.json";
@@ -34,8 +38,8 @@ inline constexpr const char* frames = "frames";
 inline constexpr const char* inputs = "inputs"; ///< copies of the files that the case names
 /// Left while a run is not at its end: what `resume` takes up.
 inline constexpr const char* state = "state.bin";
-inline constexpr const char* all[] = {resolved_case, record,     history,   profile,
-                                      metrics,       series,     level_set, picture_svg,
-                                      picture_png,   sheath_svg, sheath_png};
+inline constexpr const char* all[] = {
+    resolved_case, record,      history,    profile,    metrics, series,     level_set,
+    picture_svg,   picture_png, sheath_svg, sheath_png, causes,  causes_svg, causes_png};
 
 } // namespace rille::engine::output_names

@@ -331,6 +331,7 @@ RunResult follow_recipe(Course& run) {
         result.error = std::current_exception();
     }
     result.last = snapshot(run.the_case, simulation, record.failure.empty());
+    result.shape = simulation.ledger().parts();
     record.warnings = run.watch.warnings();
     note_health(run.the_case, run.expected, simulation, record);
     record.resumed = run.state.resumed;

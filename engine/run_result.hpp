@@ -4,6 +4,7 @@
 #include "engine/history.hpp"
 #include "engine/metric.hpp"
 #include "engine/run_record.hpp"
+#include "engine/shape_ledger.hpp"
 #include "fluxes/surface_step.hpp"
 #include "geometry/grown_films.hpp"
 #include "geometry/surface.hpp"
@@ -51,6 +52,7 @@ struct RunResult {
     SurfaceState last;
     std::vector<HistoryRow> history;
     std::vector<StepMetrics> after; ///< at the ends of the steps that targets name
+    std::vector<ShapePart> shape;   ///< what has made it
     RunRecord record;
     std::exception_ptr error; ///< what stopped the run, null unless record.status is "failed"
     /// Writes the level set to the path given; empty = no such file.

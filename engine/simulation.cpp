@@ -22,9 +22,9 @@ namespace {
 using geometry::Surface;
 using geometry::Vec3;
 
-constexpr double touching = 1e-6;   // [cells] a front this near to a film has reached it
-constexpr int shortest_pace = 3;    // halvings of the longest step
-constexpr double no_film_nm = 1e-9; // thinner grown film counts as none
+constexpr double touching = 1e-6;        // [cells] a front this near to a film has reached it
+constexpr double shortest_move = 0.0625; // [cells] steps are not halved further
+constexpr double no_film_nm = 1e-9;      // thinner grown film counts as none
 
 /// Adds the wall time of its scope to a counter.
 class Stopwatch {
@@ -117,11 +117,12 @@ void check_lost_rays(const Health& health) {
 Simulation::Simulation(const Case& the_case)
     : case_(the_case), stack_(the_case.films), front_(initial_front(the_case)),
       surface_(geometry::extract_surface(front_)), films_(initial_films(the_case, surface_.size())),
-      bases_(initial_bases(the_case)), open_field_(the_case) {
+      bases_(initial_bases(the_case)), open_field_(the_case), ledger_(the_case) {
     for (int b = 0; b < fluxes::batches; ++b)
         error_fields_.push_back({"displacement error " + std::to_string(b),
                                  geometry::Carry::intensive,
                                  std::vector<double>(surface_.size(), 0.0)});
+    ledger_.stand(0, surface_);
     begin_step();
 }
 
@@ -179,6 +180,7 @@ fluxes::SurfaceStep Simulation::solve(const Surface& surface, const geometry::Gr
     sampling.ions_per_species = case_.ions_per_species;
     sampling.seed = case_.seed;
     sampling.refresh = refresh_++;
+    sampling.causes = true;
     auto solved = fluxes::solve_surface(
         case_.domain, surface, *caster, materials_in_reach(surface, films), case_.mechanism,
         case_.reflection, sources_of(case_, case_.plasmas.at(plasma)), sampling, previous);
@@ -224,7 +226,7 @@ const fluxes::SurfaceStep& Simulation::arrivals() {
 
 Simulation::Trial Simulation::try_advance(const fluxes::SurfaceStep& step, double time,
                                           double max_move) {
-    Trial trial{front_, {}, films_, {}};
+    Trial trial{front_, {}, films_, {}, {}, {}};
     // Where nothing grows at the element's own normal it may at another: then the outermost film.
     std::vector<int> growth(surface_.size(), static_cast<int>(films_.material.size()) - 1);
     for (std::size_t e = 0; e < growth.size(); ++e)
@@ -284,8 +286,9 @@ void Simulation::average_rates(fluxes::SurfaceStep& now, const fluxes::SurfaceSt
 /// Steps are halved and doubled, so that noise seldom decides about their length.
 bool Simulation::pace(double change, double share) {
     const int before = pace_;
+    const int most = std::max(0, int(std::lround(std::log2(case_.refresh_move / shortest_move))));
     if (change > case_.refresh_change)
-        pace_ = std::min(pace_ + 1, shortest_pace);
+        pace_ = std::min(pace_ + 1, most);
     else if (change < 0.4 * case_.refresh_change && share > 0.9)
         pace_ = std::max(pace_ - 1, 0);
     return change > 10 * case_.refresh_change && pace_ > before;
@@ -325,7 +328,10 @@ Simulation::Trial Simulation::heun(double time_limit) {
             continue;
         }
         average_rates(present_, later, there);
-        return try_advance(present_, predicted.report.time, 2 * case_.refresh_move);
+        Trial trial = try_advance(present_, predicted.report.time, 2 * longest);
+        trial.at_start = ledger_.read(surface_, now.cause, now.supply);
+        trial.at_end = ledger_.read(predicted.surface, later.cause, later.supply);
+        return trial;
     }
 }
 
@@ -363,6 +369,8 @@ Simulation::Trial Simulation::land_on_goal(Trial&& beyond, const fluxes::Surface
         Trial trial = try_advance(step, time, 2 * case_.refresh_move);
         const double distance = distance_to_goal(trial.surface);
         if (distance <= 0) {
+            trial.at_start = std::move(best.at_start);
+            trial.at_end = std::move(best.at_end);
             best = std::move(trial);
             late = time;
             below = distance;
@@ -398,8 +406,10 @@ void Simulation::accept(Trial&& trial, const fluxes::SurfaceStep& step) {
         for (std::size_t f = 0; f < thickness.size(); ++f)
             films_.thickness[f] = std::move(thickness[f].value);
     }
+    ledger_.add(dt, trial.at_start, trial.at_end);
     front_ = std::move(trial.front);
     surface_ = std::move(trial.surface);
+    ledger_.stand(time_s_ + dt, surface_);
     {
         const Stopwatch watch(timings_.carry);
         bases_.follow(front_);

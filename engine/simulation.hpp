@@ -4,6 +4,7 @@
 #include "engine/case.hpp"
 #include "engine/open_field.hpp"
 #include "engine/run_record.hpp"
+#include "engine/shape_ledger.hpp"
 #include "fluxes/surface_step.hpp"
 #include "geometry/between_centres.hpp"
 #include "geometry/film_bases.hpp"
@@ -99,6 +100,8 @@ public:
     const Health& health() const { return health_; }
     const Timings& timings() const { return timings_; }
     const std::vector<IsolatedEvent>& isolated_parts() const { return isolated_; }
+    /// What has made the shape so far.
+    const ShapeLedger& ledger() const { return ledger_; }
     /// Share of the present recipe step that is done, in [0, 1], as far as can be told.
     double step_progress() const;
 
@@ -109,6 +112,7 @@ private:
         geometry::Surface surface;
         geometry::GrownFilms films; ///< on the elements of the surface before the advance
         geometry::AdvanceReport report;
+        ShapeLedger::Readings at_start, at_end; ///< of the causes
     };
     /// Lists what changes from step to step, for saving and reading back.
     template <class Archive, class Self>
@@ -161,6 +165,7 @@ private:
     std::vector<StepOutcome> outcomes_;
     std::map<std::string, double> duration_s_; ///< of finished steps
     std::vector<IsolatedEvent> isolated_;
+    ShapeLedger ledger_;
     double time_s_ = 0, last_dt_s_ = 0, last_move_cells_ = 0, step_start_s_ = 0;
     double start_distance_ = 0; ///< distance to the goal when the step began [nm]
     std::size_t step_index_ = 0;

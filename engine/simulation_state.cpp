@@ -17,6 +17,7 @@ void Simulation::visit(Archive& archive, Self& self) {
         archive(field.value);
     self.bases_.visit(archive, self.bases_);
     self.open_field_.visit(archive, self.open_field_);
+    self.ledger_.visit(archive, self.ledger_);
     archive(self.duration_s_);
     archive(self.time_s_);
     archive(self.last_dt_s_);

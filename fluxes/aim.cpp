@@ -115,28 +115,32 @@ void OpeningAims::widen_at_mirrors(Aim& aim) const {
     widen(aim.y0, aim.y1, domain_.y_min(), domain_.width_y());
 }
 
-std::optional<Aim> OpeningAims::from(const geometry::Vec3& p) const {
+std::vector<Aim> OpeningAims::from(const geometry::Vec3& p) const {
     const int nx = domain_.cells_x, ny = domain_.cells_y;
     const double h = domain_.spacing;
     const int i = std::clamp(int(std::floor((p.x - domain_.x_min()) / h)), 0, nx - 1);
     const int j = std::clamp(int(std::floor((p.y - domain_.y_min()) / h)), 0, ny - 1);
-    std::optional<Aim> best;
-    double smallest = 1.0; // area over height squared; above that the cosine law does as well
+    std::vector<Aim> aims;
+    std::vector<double> size; // area over height squared
     for (const Level& level : levels_) {
         const double up = level.z - p.z;
         if (up < h) break;
         const Cell cell = level.cells[std::size_t(j) * nx + i];
         if (cell.opening < 0) continue;
         Aim aim = level.openings[cell.opening];
-        const double size = aim.area() / (up * up);
-        if (size >= smallest) continue;
-        smallest = size;
+        const double own = aim.area() / (up * up);
+        if (own >= 1) continue; // the cosine law does as well
         // The opening's frame is di, dj periods away from the frame of the cell.
         aim.x0 -= cell.di * domain_.width_x(), aim.x1 -= cell.di * domain_.width_x();
         aim.y0 -= cell.dj * domain_.width_y(), aim.y1 -= cell.dj * domain_.width_y();
-        best = aim;
+        // Narrower than what is seen above: that is then no longer the narrowest.
+        while (!size.empty() && own < size.back())
+            aims.pop_back(), size.pop_back();
+        if (!size.empty() && own < widening * size.back()) continue;
+        aims.push_back(aim);
+        size.push_back(own);
     }
-    return best;
+    return aims;
 }
 
 } // namespace rille::fluxes

@@ -5,7 +5,6 @@
 #include "geometry/ray_caster.hpp"
 #include "geometry/surface.hpp"
 
-#include <optional>
 #include <vector>
 
 namespace rille::fluxes {
@@ -22,11 +21,15 @@ struct Aim {
 /// square about the opening's outer circle.
 class OpeningAims {
 public:
+    static constexpr double widening = 5;
+
     OpeningAims(const geometry::Domain&, const geometry::RayCaster&);
 
-    /// Bounding rectangle of the opening nearest to `from`, at the level that makes it smallest as
-    /// seen from there; nothing where the sky is wide.
-    std::optional<Aim> from(const geometry::Vec3& from) const;
+    /// Bounding rectangles of the opening nearest to `from`: first at the level that makes it
+    /// smallest as seen from there, then at lower ones, each at least `widening` times as wide in
+    /// solid angle, so that rays by turns through all of them sample the way up evenly in the
+    /// logarithm of the height. Empty where the sky is wide.
+    std::vector<Aim> from(const geometry::Vec3& from) const;
 
 private:
     struct Cell {

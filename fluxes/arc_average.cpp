@@ -21,11 +21,12 @@ struct Piece {
     bool ring = false; ///< the last joins the first
 };
 
-bool corner_between(const Surface& s, int e, int f) {
-    return s.normal[e].dot(s.normal[f]) < std::cos(corner_angle);
+bool corner_between(const Surface& s, int e, int f, double angle = corner_angle) {
+    return s.normal[e].dot(s.normal[f]) < std::cos(angle);
 }
 
-std::vector<Piece> smooth_pieces(const Surface& s) {
+/// Pieces of the contour without a corner of more than `angle` [rad].
+std::vector<Piece> smooth_pieces(const Surface& s, double angle) {
     const int count = static_cast<int>(s.size());
     std::vector<char> taken(count, 0);
     std::vector<Piece> pieces;
@@ -33,7 +34,8 @@ std::vector<Piece> smooth_pieces(const Surface& s) {
         if (taken[seed]) continue;
         int start = seed;
         bool ring = false;
-        for (int e = s.previous[start]; e >= 0 && !corner_between(s, e, start); e = s.previous[e]) {
+        for (int e = s.previous[start]; e >= 0 && !corner_between(s, e, start, angle);
+             e = s.previous[e]) {
             start = e;
             if (e == seed) {
                 ring = true;
@@ -42,7 +44,7 @@ std::vector<Piece> smooth_pieces(const Surface& s) {
         }
         Piece piece{{}, ring};
         for (int e = start; e >= 0 && !taken[e]; e = s.next[e]) {
-            if (e != start && corner_between(s, s.previous[e], e)) break;
+            if (e != start && corner_between(s, s.previous[e], e, angle)) break;
             taken[e] = 1;
             piece.elements.push_back(e);
         }
@@ -169,12 +171,44 @@ void add_rows(const Surface& surface, std::vector<std::vector<ArcAverage::Part>>
     }
 }
 
+/// How much of an average is left between places whose normals differ by an angle of this cosine:
+/// all up to 15 degrees, nothing from 45 on, smoothly in between.
+double left_over(double cosine) {
+    const double from = std::cos(0.5 * corner_angle), to = std::cos(1.5 * corner_angle);
+    const double x = std::clamp((cosine - to) / (from - to), 0.0, 1.0);
+    return x * x * (3 - 2 * x);
+}
+
+/// Weakens weights by how far the surface turns on the way between two elements. A limit to the
+/// angle would let averages jump where a bend that moves along comes and goes as a corner, and with
+/// them the rates on either side.
+void fade_with_turn(const Surface& surface, std::vector<std::vector<ArcAverage::Part>>& rows) {
+    const auto left_on_way = [&](int e, int f, const std::vector<int>& next) {
+        double least = 1;
+        for (int k = e; least > 0; k = next[k]) {
+            if (k < 0) return -1.0;
+            least = std::min({least, left_over(surface.normal[e].dot(surface.normal[k])),
+                              left_over(surface.normal[f].dot(surface.normal[k]))});
+            if (k == f) break;
+        }
+        return least;
+    };
+    for (std::size_t e = 0; e < rows.size(); ++e)
+        for (ArcAverage::Part& part : rows[e]) {
+            const int own = static_cast<int>(e);
+            const bool ahead = part.element >= own;
+            part.weight *= std::max(
+                0.0, left_on_way(own, part.element, ahead ? surface.next : surface.previous));
+        }
+}
+
 /// Turns weights that keep sums of value times length into ones that keep sums of value times area.
 /// Times the lengths they are the same both ways; K_ef = L_e w_ef r_e r_f stays so, and x_e K_ef
 /// x_f with sums over f equal to the areas does both: the scaling of a symmetric matrix to given
 /// row sums (Sinkhorn and Knopp 1967, from memory). Near the axis, where areas change fast, this
 /// still reaches as far as elsewhere.
 void weigh_by_area(const Surface& surface, std::vector<std::vector<ArcAverage::Part>>& rows) {
+    fade_with_turn(surface, rows);
     constexpr int rounds = 60;
     const std::size_t count = surface.size();
     std::vector<double> scale(count, 1.0), next(count);
@@ -212,7 +246,8 @@ ArcAverage arc_average(const Domain& domain, const Surface& surface) {
     const int count = static_cast<int>(surface.size());
     std::vector<std::vector<ArcAverage::Part>> rows(count);
     if (domain.planar_contour()) {
-        for (const Piece& piece : smooth_pieces(surface))
+        const double angle = domain.revolved() ? 1.5 * corner_angle : corner_angle;
+        for (const Piece& piece : smooth_pieces(surface, angle))
             add_piece(surface, piece, window_cells * domain.spacing, rows);
         if (domain.revolved()) weigh_by_area(surface, rows);
     } else {

@@ -11,8 +11,9 @@ namespace rille::fluxes {
 /// Averages over a few cells of surface that lose nothing and never reach across a corner.
 ///
 /// extruded: box of five cells of arc inside a smooth piece, reflected at the piece's ends, so that
-/// a constant stays constant and the sum of value times length is kept to round-off; revolved: the
-/// same with the sum of value times area. full: elements
+/// a constant stays constant and the sum of value times length is kept to round-off. revolved: the
+/// same with the sum of value times area, and weights that fade between normals 15 and 45 degrees
+/// apart in place of an edge to the piece at a corner. full: elements
 /// that share a corner, twice over, within the corner angle; sums of value times area are kept.
 struct ArcAverage {
     struct Part {

@@ -13,16 +13,26 @@ namespace rille::fluxes {
 
 /// The exchange operator from rays, for what ExactExchange does not treat: `full`, and profiles
 /// with pieces that float in the gas. Row sum of A plus d is 1 by construction, so zero sticking
-/// gives flux 1 everywhere. d: in full and revolved from rays by the cosine law combined with rays
-/// aimed at the opening (multiple importance sampling, unbiased). The rest of a row is shared
-/// equally by the elements that the cosine-law rays of the element hit.
+/// gives flux 1 everywhere.
+///
+/// Where an element sees its opening under a narrow angle, half of its rays leave by the cosine law
+/// and half are aimed through its opening and cross-sections below that (full and revolved); every
+/// ray, whatever sent it, counts with cosine density over the density of all kinds together
+/// (multiple importance sampling by the balance heuristic). Rays that end in the open make up d,
+/// rays that end on elements the row of A. What the weights of a row miss or exceed in total, with
+/// mean zero, goes to the element itself: that keeps the expectation of every entry.
+/// Source: Veach & Guibas (1995) [from memory].
+///
+/// One sequence of low discrepancy runs over the rays of a batch from 256 elements in spatial
+/// order, so that the rays of neighbours complete each other: the drift of particles along a deep
+/// wall, which decides about its floor, is averaged over many elements.
 ///
 /// The batches are independent of each other: each has its own scramble of launch points and
 /// directions. Elements without any path to the open (closed voids) receive nothing.
 class Exchange : public ExchangeOperator {
 public:
     struct Options {
-        int rays_per_element = 64; ///< a multiple of `batches`
+        int rays_per_element = 64; ///< of both kinds together; a multiple of `batches`
         std::uint64_t seed = 1;
         std::uint64_t refresh = 0; ///< a new scramble for every refresh
     };
@@ -51,8 +61,9 @@ private:
     std::vector<double> direct_;
     std::vector<std::vector<double>> batch_direct_;
     std::vector<std::int32_t> target_; ///< [element][batch][ray]: elements hit, packed to the front
-    std::vector<std::int16_t> hits_;   ///< [element][batch]: how many of them
-    std::vector<std::uint8_t> open_;   ///< whether any path leads to the open
+    std::vector<std::uint16_t> weight_; ///< likewise: root of the ray's weight over the largest
+    std::vector<std::int16_t> hits_;    ///< [element][batch]: how many of them
+    std::vector<std::uint8_t> open_;    ///< whether any path leads to the open
 };
 
 } // namespace rille::fluxes

@@ -28,10 +28,16 @@ struct Deposit {
     std::size_t slot; ///< (bounce class * tallies + m) * elements + e
     double value;
 };
+/// Towards where an arrival comes from, times its flux.
+struct Origin {
+    int element;
+    double up, along;
+};
 struct Chunk {
     int ion = 0, batch = 0, first = 0, count = 0;
     int of = 0; ///< ions of this species in the batch
     std::vector<Deposit> deposits;
+    std::vector<Origin> origins;
     double lost = 0; ///< flux times area
 };
 
@@ -71,6 +77,7 @@ public:
         const bool apart = options_.bounces_by_batch;
         result.value.assign(batches, std::vector<double>(slots, 0.0));
         result.by_bounces.assign(apart ? batches : 1, std::vector<double>(bounce_classes * slots));
+        std::vector<double> up(surface_.size(), 0.0), along(surface_.size(), 0.0);
         double lost = 0, incident = 0;
         for (const IonSource& ion : ions_)
             incident += ion.flux * domain_.base_area();
@@ -81,8 +88,13 @@ public:
                 result.value[chunk.batch][d.slot % slots] += d.value;
                 bounces[d.slot] += share * d.value;
             }
+            for (const Origin& o : chunk.origins) {
+                up[o.element] += o.up;
+                along[o.element] += o.along;
+            }
             lost += chunk.lost / batches;
         }
+        result.from_angle = angles_of(up, along);
         if (options_.averaged) {
             average(result.value, tallies_.size());
             average(result.by_bounces, bounce_classes * tallies_.size());
@@ -92,6 +104,28 @@ public:
     }
 
 private:
+    double own_angle(std::size_t e) const {
+        const Vec3& n = normal_[e];
+        return domain_.planar_contour() ? std::atan2(n.x, n.z)
+                                        : std::acos(std::clamp(n.z, -1.0, 1.0));
+    }
+    /// Part of a direction along the horizontal part of an element's normal.
+    double along_normal(const Vec3& direction, int e) const {
+        if (domain_.planar_contour()) return direction.x;
+        const Vec3& n = normal_[e];
+        const double flat = std::hypot(n.x, n.y);
+        return flat > 1e-9 ? (direction.x * n.x + direction.y * n.y) / flat : 0.0;
+    }
+    std::vector<double> angles_of(const std::vector<double>& up,
+                                  const std::vector<double>& along) const {
+        std::vector<double> angle(surface_.size());
+        for (std::size_t e = 0; e < angle.size(); ++e) {
+            const double z = average_.of(up, int(e)), h = average_.of(along, int(e));
+            angle[e] = z != 0 || h != 0 ? std::atan2(h, z) : own_angle(e);
+        }
+        return angle;
+    }
+
     void average(std::vector<std::vector<double>>& value, std::size_t tallies) const {
         const std::size_t count = surface_.size();
         tbb::parallel_for(std::size_t(0), value.size() * tallies, [&](std::size_t i) {
@@ -213,6 +247,8 @@ private:
     void deposit(Chunk& chunk, const Hit& hit, double carried, double energy, double cosine,
                  std::size_t bounces) const {
         const double flux = carried / surface_.area[hit.element];
+        chunk.origins.push_back({hit.element, -flux * hit.direction.z,
+                                 -flux * along_normal(hit.direction, hit.element)});
         for (const int m : own_tallies_[chunk.ion]) {
             const double value = flux * tallies_[m].yield(energy, cosine);
             const std::size_t row = bounces * tallies_.size() + m;
@@ -239,6 +275,17 @@ private:
 };
 
 } // namespace
+
+double share_after_turn(double own, double from, double angle) {
+    constexpr double idle = 10 * degree, right = 90 * degree;
+    const double turn = std::fabs(angle - own);
+    if (turn <= idle) return 1;
+    const double counted = std::copysign(right * (turn - idle) / (right - idle), angle - own);
+    const double facing = std::cos(own - from);
+    if (!(facing > 0)) return 1;
+    return std::clamp(std::cos(std::clamp(own + counted - from, -2 * right, 2 * right)) / facing,
+                      0.0, 1.0);
+}
 
 ReflectedIons trace_reflected(const geometry::Domain& domain, const geometry::Surface& surface,
                               const geometry::RayCaster& caster, const std::vector<int>& material,

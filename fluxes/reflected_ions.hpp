@@ -20,6 +20,10 @@ struct ReflectedIons {
     /// The same by bounces, (k * tallies + m) * elements + e with k = 0, 1, 2 for ions after 1, 2
     /// and 3 or more: the mean over the batches or, if asked for, one of each batch.
     std::vector<std::vector<double>> by_bounces;
+    /// Where they come from: angle of the mean direction towards their origin, weighted by flux, in
+    /// the plane of the element's normal and z (convention of geometry::NormalRates); the
+    /// normal's own angle where none come.
+    std::vector<double> from_angle;
     double lost_share =
         0; ///< ion flux lost to roulette bookkeeping or lost rays, share of incident
 };
@@ -45,5 +49,12 @@ ReflectedIons trace_reflected(const geometry::Domain&, const geometry::Surface&,
                               const DirectIons& direct,
                               const std::vector<IonReflection>& reflection,
                               const ReflectionOptions&);
+
+/// Share of the reflected ions found on an element that is left when its normal turns from `own` to
+/// `angle` [rad]: the ratio of the cosines to the direction that they come from, at most 1. The
+/// first 10 degrees of the turn do not count, since arrivals at a wall are found for a mean normal
+/// that the front has only to within a fraction of that; from there on the turn counts more, so
+/// that a right angle is one. So a floor's ions do not act on the wall that it leaves behind.
+double share_after_turn(double own, double from, double angle);
 
 } // namespace rille::fluxes

@@ -81,12 +81,33 @@ RoundProfile::RoundProfile(const geometry::Domain& domain, const geometry::Surfa
         bore_ = bore_ && (k <= bottom_ ? step <= tolerance_ : step >= -tolerance_);
     }
     rising_ = bore_ && bottom_ == 0;
+    find_bore_points();
+}
+
+/// Of the vertices from the lowest one on those where the profile does not turn away from the axis:
+/// a line that leaves the neighbours of another to the outside leaves that one there as well.
+void RoundProfile::find_bore_points() {
+    for (int k = 0; k < static_cast<int>(point_.size()); ++k) {
+        bore_before_.push_back(bore_points_.size());
+        if (k < bottom_ || k > rim_) continue;
+        const PlanePoint& p = point_[k];
+        if (k > bottom_ && k < rim_) {
+            const PlanePoint &a = point_[k - 1], &b = point_[k + 1];
+            if (a.z < p.z && p.z < b.z && p.x > a.x + (p.z - a.z) / (b.z - a.z) * (b.x - a.x))
+                continue;
+        }
+        bore_points_.push_back(p);
+    }
+    bore_before_.push_back(bore_points_.size());
 }
 
 BetweenRings RoundProfile::what_stands_between() const {
-    const auto rim = static_cast<std::size_t>(rim_), bottom = static_cast<std::size_t>(bottom_);
-    if (bore_) return {&point_, 0, bottom, bottom, rim + 1, {}};
-    return {&point_, 0, rim, 0, 0, {}};
+    BetweenRings between;
+    between.point = &point_;
+    between.bore = &bore_points_;
+    between.last_edge = static_cast<std::size_t>(bore_ ? bottom_ : rim_);
+    if (bore_) between.last_bore = bore_points_.size();
+    return between;
 }
 
 /// Whether no edge that faces away from the axis, solid within, reaches into these heights.
@@ -175,7 +196,10 @@ double RoundProfile::by_windows(const RingPoint& from, int place) const {
     std::vector<CosineRange> scratch;
     BetweenRings between = what_stands_between();
     between.own[0] = {std::size_t(place), std::size_t(place + 1)};
-    between.first_bore = std::max(between.first_bore, std::size_t(place + 1));
+    if (bore_ && place + 1 >= bottom_) {
+        between.first_bore = bore_before_[place + 1];
+        between.beside[between.beside_count++] = place + 1;
+    }
     double sum = 0;
     for (int g = 0; g < 48; ++g) {
         const double s = (gauss_16().node[g % 16] + g / 16) / 3;
@@ -228,8 +252,10 @@ double RoundProfile::by_azimuths(const Patches& patches, int i, int j) const {
         between.rings.own[side] = {std::size_t(corner(p)), std::size_t(corner(p + 1))};
     }
     if (corner(low) >= bottom_ && bore_) {
-        between.rings.first_bore = corner(low + 1);
-        between.rings.last_bore = corner(high) + 1;
+        between.rings.first_bore = bore_before_[corner(low + 1)];
+        between.rings.last_bore = bore_before_[corner(high) + 1];
+        between.rings.beside = {std::size_t(corner(low + 1)), std::size_t(corner(high))};
+        between.rings.beside_count = 2;
     }
     const double both = from.measure() * to.measure();
     return both > 0 ? integrate(from, to, 0, between) / both * patches.area(i) * patches.area(j)

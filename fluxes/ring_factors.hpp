@@ -42,6 +42,7 @@ public:
 private:
     bool is_clear(double low, double high) const;
     bool is_open_disc(int vertex) const;
+    void find_bore_points();
     struct Chord {
         PlanePoint start, end;
         PlanePoint at(double part) const {
@@ -73,6 +74,8 @@ private:
     int bottom_ = 0;                ///< the lowest vertex, or one as low nearer to the axis
     bool bore_ = false;             ///< whether it only falls before that and only rises after
     bool rising_ = false;           ///< whether it only rises
+    std::vector<PlanePoint> bore_points_;  ///< BetweenRings::bore, where bore_
+    std::vector<std::size_t> bore_before_; ///< of these before each vertex
 };
 
 } // namespace rille::fluxes

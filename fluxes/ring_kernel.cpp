@@ -48,17 +48,24 @@ double highest_cosine(const PlanePoint& from, const PlanePoint& to, const Betwee
     if (rise == 0) return 1.0;
     const double per_rise = 1 / rise, a = from.x * from.x, b = to.x * to.x;
     double least = 2 * from.x * to.x;
-    for (std::size_t k = between.first_bore; k < between.last_bore; ++k) {
-        const PlanePoint& p = (*between.point)[k];
+    const auto look = [&](const PlanePoint& p) {
         const double t = (p.z - from.z) * per_rise, rest = 1 - t;
         if (t > 1e-9 && rest > 1e-9)
             least = std::min(least, (p.x * p.x - rest * rest * a - t * t * b) / (t * rest));
-    }
+    };
+    for (std::size_t k = between.first_bore; k < between.last_bore; ++k)
+        look((*between.bore)[k]);
+    for (int k = 0; k < between.beside_count; ++k)
+        look((*between.point)[between.beside[k]]);
     return least / (2 * from.x * to.x);
 }
 
 } // namespace
 
+const GaussRule<8>& gauss_8() {
+    static const GaussRule<8> rule = make_rule<8>();
+    return rule;
+}
 const GaussRule<3>& gauss_3() {
     static const GaussRule<3> rule = make_rule<3>();
     return rule;
@@ -166,15 +173,18 @@ double ring_kernel(const RingPoint& from, const RingPoint& to, const BetweenRing
     const auto window = [&](double low, double high) { // of the cosine
         const double a = std::asinh(std::acos(std::clamp(high, -1.0, 1.0)) / (2 * peak));
         const double b = std::asinh(std::acos(std::clamp(low, -1.0, 1.0)) / (2 * peak));
-        double sum = 0;
-        for (int i = 0; i < 16; ++i) {
-            const double v = std::exp(a + (b - a) * gauss_16().node[i]);
-            const double azimuth = peak * (v - 1 / v), half = std::sin(0.5 * azimuth);
-            const double c = 1 - 2 * half * half, d = (e - f) + 2 * f * half * half;
-            sum +=
-                gauss_16().weight[i] * peak * (v + 1 / v) * (a1 + b1 * c) * (a2 + b2 * c) / (d * d);
-        }
-        return sum * (b - a);
+        const auto by = [&](const auto& rule) {
+            double sum = 0;
+            for (std::size_t i = 0; i < rule.node.size(); ++i) {
+                const double v = std::exp(a + (b - a) * rule.node[i]);
+                const double azimuth = peak * (v - 1 / v), half = std::sin(0.5 * azimuth);
+                const double c = 1 - 2 * half * half, d = (e - f) + 2 * f * half * half;
+                sum +=
+                    rule.weight[i] * peak * (v + 1 / v) * (a1 + b1 * c) * (a2 + b2 * c) / (d * d);
+            }
+            return sum * (b - a);
+        };
+        return peak > 0.5 ? by(gauss_8()) : by(gauss_16());
     };
     double sum = 0, at = range.low;
     for (const CosineRange& hidden : scratch) {

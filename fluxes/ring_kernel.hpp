@@ -41,7 +41,13 @@ CosineRange crossing(const PlanePoint& from, const PlanePoint& to, const PlanePo
 struct BetweenRings {
     const std::vector<PlanePoint>* point = nullptr;
     std::size_t first_edge = 0, last_edge = 0; ///< edges k -> k + 1, solid on one side, any kind
-    std::size_t first_bore = 0, last_bore = 0; ///< vertices with solid outside them
+    /// Vertices with solid outside them. Where the profile turns away from the axis a vertex hides
+    /// nothing that its neighbours leave: `bore` need not hold it.
+    const std::vector<PlanePoint>* bore = nullptr;
+    std::size_t first_bore = 0, last_bore = 0; ///< of `bore`
+    /// Vertices of `point` like that next to the rings, whether in `bore` or not; used ones.
+    std::array<std::size_t, 2> beside{};
+    int beside_count = 0;
     /// Edges that belong to the rings themselves, first and last: facing says what they hide.
     std::array<std::array<std::size_t, 2>, 2> own{};
     bool is_own(std::size_t edge) const {
@@ -51,7 +57,8 @@ struct BetweenRings {
 
 /// Integral over the azimuth, both ways round, of cos cos / (pi distance^2) between two rings where
 /// they face and nothing stands between: per area of `to`, the factor from `from`, divided by the
-/// azimuth's 2 pi. 16 Gauss points a window.
+/// azimuth's 2 pi. 16 Gauss points a window, 8 where the rings are farther apart than their
+/// radii: the integrand is smooth there.
 double ring_kernel(const RingPoint& from, const RingPoint& to, const BetweenRings&,
                    std::vector<CosineRange>& scratch);
 
@@ -61,6 +68,7 @@ struct GaussRule {
     std::array<double, N> node, weight;
 };
 const GaussRule<3>& gauss_3();
+const GaussRule<8>& gauss_8();
 const GaussRule<16>& gauss_16();
 
 } // namespace rille::fluxes

@@ -62,6 +62,7 @@ struct IonArrivals {
     std::vector<double> by_path; ///< [(element * ion_paths + path) * tallies + m]
     std::vector<std::vector<double>> by_path_batch; ///< [batch], where they are asked for
     std::vector<double> reflected;                  ///< [element][tally], mean over batches
+    std::vector<double> reflected_from;             ///< ReflectedIons::from_angle, or empty
     std::vector<double> total;                      ///< [element][tally], direct and reflected
     std::vector<std::vector<double>> batch; ///< [batch][element][tally]: the same of one batch
 
@@ -183,6 +184,7 @@ IonArrivals gather_ions(const Setting& s, const std::vector<IonReflection>& refl
                                   options);
     }
     for_elements(n, [&](int e) { add_up(bounced, n, e, ions); });
+    ions.reflected_from = std::move(bounced.from_angle);
     return ions;
 }
 
@@ -260,12 +262,20 @@ void tabulate(const Setting& s, const IonArrivals& ions, SurfaceStep& step) {
     for_elements(s.surface.size(), [&](int e) {
         const auto neutrals = at_element(step.neutral, e);
         const double* bounced = ions.reflected.data() + std::size_t(e) * ions.tallies;
+        const geometry::Vec3& n = s.surface.normal[e];
+        const double own = s.domain.planar_contour() ? std::atan2(n.x, n.z)
+                                                     : std::acos(std::clamp(n.z, -1.0, 1.0));
         std::vector<double> tallies(ions.tallies), last;
         std::vector<DirectIons::TallyRow> direct(any_ions ? ions.counts_for.size() : 0);
         for (int m = 0; m < int(direct.size()); ++m)
             direct[m] = ions.direct->tally_row(m, e);
         for (std::size_t a = 0; a < angles; ++a) {
-            std::copy(bounced, bounced + ions.tallies, tallies.begin());
+            const double left =
+                ions.reflected_from.empty()
+                    ? 1.0
+                    : share_after_turn(own, ions.reflected_from[e], rates.angles[a]);
+            for (int m = 0; m < ions.tallies; ++m)
+                tallies[m] = left * bounced[m];
             for (std::size_t m = 0; m < direct.size(); ++m)
                 tallies[ions.counts_for[m]] += direct[m].factor * direct[m].value[a];
             const bool same = a > 0 && tallies == last; // turned away from every ion, or no ions
@@ -294,11 +304,12 @@ void respond_everywhere(const Setting& s, const IonArrivals& ions,
     step.growth_material.assign(n, -1);
     step.rate_batch.assign(batches, std::vector<double>(n, 0));
     const std::size_t supplies = ion_paths + s.mechanism.neutrals.size();
-    if (detail) {
+    const bool causes = detail || s.sampling.causes;
+    if (causes) {
         step.cause.assign(cause_count, std::vector<double>(n, 0));
         step.supply.assign(supplies, std::vector<double>(n, 0));
-        detail->cause_batch.assign(batches, step.cause);
     }
+    if (detail) detail->cause_batch.assign(batches, step.cause);
     for_elements(n, [&](int e) {
         const int material = s.outermost(e);
         const auto neutrals = at_element(step.neutral, e);
@@ -306,7 +317,7 @@ void respond_everywhere(const Setting& s, const IonArrivals& ions,
         step.response[e] = r;
         step.growth_material[e] = r.rate < 0 ? r.grown_material : r.settling_material;
         const std::size_t paths = std::size_t(e) * ion_paths * ions.tallies;
-        if (detail) {
+        if (causes) {
             put(cause_rates(s.mechanism, material, r, &ions.by_path[paths]), e, step.cause);
             put(supply_rates(s.mechanism, material,
                              {ions.at(e, -1), neutrals.data(), s.sources.wafer_temperature_k},

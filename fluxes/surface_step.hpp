@@ -39,7 +39,8 @@ struct Sampling {
     int ion_directions = 64;
     std::uint64_t seed = 1;
     std::uint64_t refresh = 0;
-    bool detailed = false; ///< SurfaceStep::cause, supply and detail are filled
+    bool causes = false;   ///< SurfaceStep::cause and supply are filled
+    bool detailed = false; ///< these and SurfaceStep::detail are filled
 };
 
 /// Materials that a step may meet at each element, outermost first: reach[first[e]..first[e + 1]).
@@ -66,7 +67,7 @@ struct SurfaceStep {
     std::vector<std::vector<double>> ion_flux; ///< [species][element] direct, [nm^-2 s^-1]
     /// [species][element] direct fast neutrals of that ion; empty for an ion without any.
     std::vector<std::vector<double>> fast_neutral_flux;
-    /// Empty unless Sampling::detailed: parts of the rate of the outermost material, cause_rates(),
+    /// Empty unless asked for: parts of the rate of the outermost material, cause_rates(),
     /// and supply_rates() of the same: paths of ions, then neutral species.
     CauseFields cause, supply;
     std::shared_ptr<const SurfaceDetail> detail; ///< null unless Sampling::detailed

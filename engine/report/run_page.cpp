@@ -107,6 +107,30 @@ std::string slider_html(std::size_t moments) {
         moments - 1);
 }
 
+/// What each cause has removed, as the run drew it at its end.
+PageSection causes_section(const RunParts& p) {
+    PageSection section{"causes", "What made the shape", "", false, "Causes"};
+    const std::filesystem::path path =
+        std::filesystem::path(p.folder.path) / output_names::causes_svg;
+    if (!std::filesystem::exists(path)) return section;
+    Figure figure;
+    figure.id = "causes-of-shape";
+    figure.svg = read_file(path.string());
+    figure.least_width = 700;
+    figure.caption =
+        "How far each cause has moved the walls at every height, and the floor at every "
+        "place across, since they were first there. Dashed: the way of the surface "
+        "itself; what the causes leave of it is an error of grid and steps.";
+    section.html =
+        p.show(figure) +
+        "<p class=\"soft small\">Ions are followed by their path: straight from the plasma, or "
+        "after bounces off other places. Hatched: sputtering; plain: etching that ions enhance; "
+        "deposition counts less than 0. A place that neutrals starve answers to ions less than "
+        "its share says: the supply columns of <code>causes.csv</code> give flux times "
+        "d(rate)/d(flux), summed over the run.</p>\n";
+    return section;
+}
+
 PageSection time_section(const RunParts& p, const Frames& frames, Page& page) {
     PageSection section{"over-time", "The profile over time", "", false, "Over time"};
     if (frames.moments.size() < 2) return section;
@@ -170,6 +194,7 @@ RunReport run_report(const Case& c, const RunFolder& folder) {
     std::vector<PageSection> sections;
     if (frames) {
         sections.push_back(time_section(parts, *frames, page));
+        sections.push_back(causes_section(parts));
         sections.push_back(surface_section(parts, frames->last, page));
         sections.push_back(comparison_section(parts, compare_measured(c, frames->last)));
     }

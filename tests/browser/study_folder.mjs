@@ -23,10 +23,11 @@ const profile = (width, depth) => {
 const metric = (name, value, error) => ({name, feature: 'line', value, unit: 'nm', sampling_error: error,
                                          grid_error: 'not assessed', definition: 'of ' + name});
 
-/* Writes a study over amplitudes and openings; `status(i)` of point i, '' for one that was not run.
+/* Writes a study over amplitudes and openings, each with each or, as a `hypercube`, one with one;
+   `status(i)` of point i, '' for one that was not run.
    Returns its rows as {column: text}. */
 export const writeStudy = (folder, {amplitudes, openings, status = () => 'done', metrics = 3,
-                                    profiles = true}) => {
+                                    profiles = true, hypercube = false}) => {
     const names = ['bottom cd_loss', ...Array.from({length: metrics - 1}, (_, i) => 'metric ' + (i + 1))];
     const columns = [column('point', 'point', 'point'), column('status', 'status', 'status'),
         ...inputs.map(([label, unit, path]) => column(`${label}_${unit}`, 'input', label, '', unit, path)),
@@ -46,12 +47,12 @@ export const writeStudy = (folder, {amplitudes, openings, status = () => 'done',
     const lines = ['# title: CD loss against rf bias', ...constants.map(text => '# constant: ' + text),
                    ...columns, header.join(',')];
     const rows = [];
-    const points = amplitudes.length * openings.length;
+    const points = amplitudes.length * (hypercube ? 1 : openings.length);
     mkdirSync(folder, {recursive: true});
     for (let i = 0; i < points; ++i) {
         const word = status(i), name = String(i + 1).padStart(4, '0');
         if (!word) continue;
-        const amplitude = amplitudes[i % amplitudes.length], opening = openings[Math.floor(i / amplitudes.length)];
+        const amplitude = amplitudes[i % amplitudes.length], opening = openings[hypercube ? i : Math.floor(i / amplitudes.length)];
         const loss = 0.5 + 0.006 * amplitude + 0.02 * (opening - 30) + i * 1e-9;
         const failed = word === 'failed' || word === 'killed';
         const values = names.flatMap((_, m) => failed ? ['', ''] : [String(loss + m / 3), String(0.1 + 0.07 * m)]);
@@ -70,8 +71,8 @@ export const writeStudy = (folder, {amplitudes, openings, status = () => 'done',
     }
     writeFileSync(folder + '/results.csv', lines.join('\n') + '\n');
     writeFileSync(folder + '/study.json', JSON.stringify({format: 1, title: 'CD loss against rf bias',
-        plan: 'full grid', points, constants, warnings: [], comparison: null,
-        answer: {y: 'bottom cd_loss', feature: 'line', x: 0, line_per: 1}}));
+        plan: hypercube ? 'latin hypercube' : 'full grid', points, constants, warnings: [], comparison: null,
+        answer: {y: 'bottom cd_loss', feature: 'line', x: 0, line_per: hypercube ? null : 1}}));
     return rows;
 };
 
@@ -86,6 +87,8 @@ if (process.argv[1].endsWith('study_folder.mjs')) {
         empty: writeStudy(work + '/empty', {...few, status: () => ''}),
         one: writeStudy(work + '/one', {amplitudes: [300], openings: [60]}),
         failed: writeStudy(work + '/failed', {...few, status: i => i % 2 ? 'failed' : 'killed'}),
+        spread: writeStudy(work + '/spread', {amplitudes: range(40, 100, 17.5), hypercube: true,
+            openings: range(40, 0, 17).map(place => 30 + 4.25 * (place % 40))}),
         large: writeStudy(work + '/large', {amplitudes: range(100, 100, 7.3), openings: range(100, 20, 3),
                                             metrics: 16, profiles: false}),
     };

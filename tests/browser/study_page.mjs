@@ -70,6 +70,22 @@ const firstColumn = page => page.locator('#points-table tbody .choose').allTextC
     await page.close();
 }
 
+{ // Points that do not line up: each against each input, as a marker that shows its profile.
+    const opened = await open(browser, file('spread'));
+    const {page} = opened;
+    for (const chart of ['#scatter-bottom-cd-loss-nm-1', '#scatter-bottom-cd-loss-nm-2']) {
+        const frame = page.locator(`${chart} > .frame:not(.narrow)`);
+        equal(await frame.locator('[data-point]').count(), rows.spread.length, `markers of ${chart}`);
+        await frame.locator('[data-point="21"]').click();
+        equal(await chosenName(page), rows.spread[21].point, `point chosen in ${chart}`);
+        const loss = await panel(page).locator('[data-column=bottom_cd_loss_nm]').getAttribute('data-value');
+        equal(Number(loss), Number(rows.spread[21].bottom_cd_loss_nm), `value of the point chosen in ${chart}`);
+        await page.keyboard.press('Escape');
+    }
+    isClean(opened, 'scatter');
+    await page.close();
+}
+
 { // The same by keyboard, and back to where one came from.
     const opened = await open(browser, file('study'));
     const {page} = opened;
@@ -160,7 +176,7 @@ const firstColumn = page => page.locator('#points-table tbody .choose').allTextC
 
 // Every page at both widths.
 const said = {study: '39 of 40 points finished', empty: 'No point of this study has been run yet',
-              one: '1 of 1 points finished', failed: 'No point has a value', large: '10000 of 10000',
+              one: '1 of 1 points finished', spread: 'do not line up', failed: 'No point has a value', large: '10000 of 10000',
               compare: '3 runs side by side'};
 for (const [name, words] of Object.entries(said))
     for (const width of [1280, 400]) {

@@ -1,11 +1,11 @@
 #!/usr/bin/env bash
 # SPDX-License-Identifier: Apache-2.0
-# The reports on studies (forty points of which some failed, none, one, all failed, ten thousand) and on
-# points side by side, in a browser.
+# The reports on studies (forty points of which some failed, none, one, all failed, forty of a hypercube,
+# ten thousand) and on points side by side, in a browser.
 . "$(dirname "$0")/browser.bash"
 rille=$1
 node "$scripts/study_folder.mjs" "$work"
-for study in study empty one failed large; do
+for study in study empty one failed spread large; do
     "$rille" report "$work/$study" --quiet
 done
 "$rille" report "$work"/study/points/0005 "$work"/study/points/0008 "$work"/study/points/0016 \

@@ -86,6 +86,6 @@ TEST_CASE("how often arrivals are renewed is a key of the case", "[inputs]") {
     CHECK(load_case(path).refresh_move == 0.5);
     CHECK(load_case(path, {"sampling.renew_after=20 %"}).refresh_move == Approx(0.2));
     for (const char* bad :
-         {"sampling.renew_after=0 %", "sampling.renew_after=120 %", "sampling.renew_after=0.5"})
+         {"sampling.renew_after=0 %", "sampling.renew_after=420 %", "sampling.renew_after=0.5"})
         CHECK_THROWS_AS(load_case(path, {bad}), InputError);
 }

@@ -38,11 +38,22 @@ struct Keeper : RunObserver {
     }
 };
 
+bool same_shape(const RunResult& a, const RunResult& b) {
+    bool same = a.shape.size() == b.shape.size() && !a.shape.empty();
+    for (std::size_t p = 0; same && p < a.shape.size(); ++p) {
+        const auto &one = a.shape[p].places, &other = b.shape[p].places;
+        same = one.size() == other.size();
+        for (std::size_t i = 0; same && i < one.size(); ++i)
+            same = one[i].now_nm == other[i].now_nm && one[i].removed == other[i].removed;
+    }
+    return same;
+}
+
 bool same_bits(const RunResult& a, const RunResult& b) {
     const auto& s = a.last.surface;
     const auto& t = b.last.surface;
     bool same = s.size() == t.size() && s.vertices == t.vertices && a.last.rate == b.last.rate &&
-                a.last.displacement == b.last.displacement &&
+                a.last.displacement == b.last.displacement && same_shape(a, b) &&
                 a.last.grown.thickness == b.last.grown.thickness &&
                 a.last.fields.size() == b.last.fields.size();
     for (std::size_t f = 0; same && f < a.last.fields.size(); ++f)
