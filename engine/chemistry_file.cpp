@@ -260,6 +260,8 @@ private:
             const ByProduct product = reader.read_by_product(*node);
             const auto& neutrals = chemistry.mechanism.neutrals;
             const auto at = std::find(neutrals.begin(), neutrals.end(), name);
+            if (at != neutrals.end())
+                chemistry.mechanism.cosine_power[at - neutrals.begin()] = product.cosine_power;
             if (!product.film.empty() && at != neutrals.end())
                 settling.push_back({static_cast<int>(at - neutrals.begin()),
                                     reader.film_id(product.film), product.sticking, node});

@@ -22,6 +22,7 @@ int index_of(const std::vector<std::string>& names, const std::string& name) {
 const ParameterForm probability_form{{}, {0, 1}, Dimension::temperature, false, true};
 const ParameterForm sticking_form{{}, {0, 1}};
 const ParameterForm count_form{{}, above_zero()};
+const ParameterForm power_form{{}, {0.5, 10}};
 
 } // namespace
 
@@ -233,6 +234,7 @@ Leavings ProcessReader::leavings(Process& p) {
 ByProduct ProcessReader::read_by_product(const YamlNode& node) {
     ByProduct product;
     MapReader map(node, problems_);
+    product.cosine_power = parameters_.value(map.optional("cosine_power"), power_form, 1);
     const YamlNode* film = map.optional("film");
     const YamlNode* sticking = map.optional("sticking");
     if (node.is_map() && (film == nullptr) != (sticking == nullptr))

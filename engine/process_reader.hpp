@@ -33,7 +33,8 @@ public:
     /// One material: {adsorbates: [...], processes: [...], ion_reflection: {...}}. Changes the
     /// reflection law if the chemistry has its own.
     fluxes::SurfaceChemistry read(const YamlNode&, const MaterialData&, fluxes::IonReflection&);
-    /// One entry of the section of by-products: {film: ..., sticking: ...} or nothing.
+    /// One entry of the section of by-products: {cosine_power: ..., film: ..., sticking: ...},
+    /// or less.
     ByProduct read_by_product(const YamlNode&);
     /// Index of a material of the run, added to the list if it is not there.
     int film_id(const std::string& film);

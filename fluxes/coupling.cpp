@@ -1,7 +1,7 @@
 // SPDX-License-Identifier: Apache-2.0
 #include "fluxes/coupling.hpp"
 
-#include "fluxes/krylov.hpp"
+#include "fluxes/coupled_equations.hpp"
 #include "geometry/check.hpp"
 
 #include <tbb/blocked_range.h>
@@ -15,6 +15,8 @@ namespace rille::fluxes {
 namespace {
 
 using Vector = std::vector<double>;
+using Answer = CoupledAnswer;
+using Problem = CoupledEquations;
 constexpr int max_newton_iterations = 12; ///< 4 to 8 are the rule
 constexpr int max_relaxation_steps = 400;
 constexpr double sticking_tolerance = 1e-6;
@@ -27,164 +29,6 @@ double norm(const Vector& v) {
         sum += x * x;
     return std::sqrt(sum);
 }
-
-/// What the surface answers to arrivals, in the units of the problem.
-struct Answer {
-    Vector sticking;
-    Vector emitted; ///< empty without by-products
-    /// slope[(e * K + k) * K + l] = d(s_k x_k - emitted_k) / d(x_l) at element e
-    Vector slope;
-};
-
-/// The equations in units of the open fluxes, or of the largest emission of a by-product; species
-/// after species: x[k * n + e].
-class Problem {
-public:
-    Problem(const ExchangeOperator& exchange, const std::vector<NeutralSupply>& supply,
-            const AnswerOf& answer)
-        : exchange_(exchange), answer_(answer), n_(exchange.size()), species_(supply.size()) {
-        for (const NeutralSupply& s : supply) {
-            unit_.push_back(s.open);
-            source_.push_back(1);
-            by_products_ = by_products_ || s.given_off;
-        }
-        if (by_products_) set_units(supply);
-    }
-
-    std::size_t unknowns() const { return n_ * species_; }
-    std::size_t species() const { return species_; }
-    std::size_t elements() const { return n_; }
-    bool by_products() const { return by_products_; }
-
-    /// The answer at x; slopes if asked.
-    Answer answer(int batch, const Vector& x, bool slopes) const {
-        Answer a;
-        a.sticking.resize(unknowns());
-        if (by_products_) a.emitted.resize(unknowns());
-        if (slopes) a.slope.resize(n_ * species_ * species_);
-        tbb::parallel_for(tbb::blocked_range<std::size_t>(0, n_, 64), [&](const auto& range) {
-            for (std::size_t e = range.begin(); e != range.end(); ++e)
-                at_element(e, batch, x, a);
-        });
-        return a;
-    }
-
-    /// out_k = A (in_k), every species.
-    void transport(int batch, const Vector& in, Vector& out) const {
-        for (std::size_t k = 0; k < species_; ++k)
-            exchange_.apply(batch, in.data() + k * n_, out.data() + k * n_);
-    }
-
-    /// source d + A ((1 - s) x + emitted) - x
-    Vector defect(int batch, const Vector& x, const Answer& a) const {
-        Vector leaving(unknowns()), out(unknowns());
-        for (std::size_t i = 0; i < x.size(); ++i)
-            leaving[i] = (1 - a.sticking[i]) * x[i];
-        for (std::size_t i = 0; i < a.emitted.size(); ++i)
-            leaving[i] += a.emitted[i];
-        transport(batch, leaving, out);
-        const auto& direct = exchange_.direct(batch);
-        for (std::size_t i = 0; i < x.size(); ++i)
-            out[i] += source_[i / n_] * direct[i % n_] - x[i];
-        return out;
-    }
-
-    /// The answer (1 - share) before + share a.
-    void blend(const Answer& before, double share, Answer& a) const {
-        for (double& part : a.slope)
-            part *= share;
-        for (std::size_t i = 0; i < a.emitted.size(); ++i)
-            a.emitted[i] = (1 - share) * before.emitted[i] + share * a.emitted[i];
-        for (std::size_t e = 0; e < n_; ++e)
-            for (std::size_t k = 0; k < species_; ++k) {
-                const std::size_t i = k * n_ + e;
-                const double fixed = (1 - share) * before.sticking[i];
-                a.sticking[i] = fixed + share * a.sticking[i];
-                a.slope[(e * species_ + k) * species_ + k] += fixed;
-            }
-    }
-
-    /// Solves (I - A (I - slope)) step = defect; whether that went well.
-    bool newton_step(int batch, const Vector& slope, const Vector& defect, double tolerance,
-                     Vector& step) const {
-        step = defect;
-        Vector leaving(unknowns()), arrived(unknowns());
-        const std::size_t K = species_;
-        const auto matrix = [&](const double* in, double* out) {
-            for (std::size_t e = 0; e < n_; ++e)
-                for (std::size_t k = 0; k < K; ++k) {
-                    double value = in[k * n_ + e];
-                    for (std::size_t l = 0; l < K; ++l)
-                        value -= slope[(e * K + k) * K + l] * in[l * n_ + e];
-                    leaving[k * n_ + e] = value;
-                }
-            transport(batch, leaving, arrived);
-            for (std::size_t i = 0; i < arrived.size(); ++i)
-                out[i] = in[i] - arrived[i];
-        };
-        return solve_linear(matrix, defect, step, tolerance).converged;
-    }
-
-    double unit(std::size_t k) const { return unit_[k]; }
-    /// Least arrival allowed. An exact exchange spreads what arrives by parabolas, which may pass
-    /// below 0 where next to nothing arrives; other neutrals come from the open everywhere.
-    double least() const { return by_products_ ? -HUGE_VAL : 0; }
-
-private:
-    /// By-products are measured by their largest emission where none of them or of the other
-    /// neutrals arrives, or the others as in the open.
-    void set_units(const std::vector<NeutralSupply>& supply) {
-        std::vector<double> largest(species_, 0.0);
-        const std::array<double, max_species> none{};
-        std::array<double, max_species> open{};
-        for (std::size_t k = 0; k < species_; ++k)
-            open[k] = supply[k].open;
-        for (std::size_t e = 0; e < n_; ++e)
-            for (const auto& neutrals : {none, open}) {
-                const NeutralAnswer a = answer_(int(e), -1, neutrals.data());
-                for (std::size_t k = 0; k < species_; ++k)
-                    largest[k] = std::max(largest[k], a.emitted[k]);
-            }
-        for (std::size_t k = 0; k < species_; ++k) {
-            if (!supply[k].given_off) continue;
-            unit_[k] = std::max(supply[k].open, largest[k]);
-            if (!(unit_[k] > 0)) unit_[k] = 1;
-            source_[k] = supply[k].open / unit_[k];
-        }
-    }
-
-    void at_element(std::size_t e, int batch, const Vector& x, Answer& a) const {
-        std::array<double, max_species> neutrals{};
-        for (std::size_t k = 0; k < species_; ++k)
-            neutrals[k] = std::max(unit_[k] * x[k * n_ + e], 0.0);
-        const NeutralAnswer here = answer_(int(e), batch, neutrals.data());
-        for (std::size_t k = 0; k < species_; ++k)
-            a.sticking[k * n_ + e] = here.sticking[k];
-        for (std::size_t k = 0; k < species_ && by_products_; ++k)
-            a.emitted[k * n_ + e] = here.emitted[k] / unit_[k];
-        if (a.slope.empty()) return;
-        for (std::size_t l = 0; l < species_; ++l) {
-            const double at = x[l * n_ + e], more = at + std::max(1e-6 * at, 1e-12);
-            auto moved = neutrals;
-            moved[l] = std::max(unit_[l] * more, 0.0);
-            const NeutralAnswer there = answer_(int(e), batch, moved.data());
-            for (std::size_t k = 0; k < species_; ++k) {
-                const double xk = x[k * n_ + e];
-                const double bend = (there.sticking[k] - here.sticking[k]) / (more - at) * xk;
-                double& slope = a.slope[(e * species_ + k) * species_ + l];
-                slope = bend + (k == l ? there.sticking[k] : 0.0);
-                if (by_products_)
-                    slope -= (there.emitted[k] - here.emitted[k]) / (unit_[k] * (more - at));
-            }
-        }
-    }
-
-    const ExchangeOperator& exchange_;
-    const AnswerOf& answer_;
-    std::vector<double> unit_, source_; ///< per species; source: open flux in these units
-    std::size_t n_, species_;
-    bool by_products_ = false;
-};
 
 struct State {
     Vector x;
@@ -204,7 +48,7 @@ State evaluate(const Problem& p, Vector x, const Blend& blend) {
     State state;
     state.x = std::move(x);
     state.met = p.answer(-1, state.x, true);
-    state.kinetic = {state.met.sticking, state.met.emitted, {}};
+    state.kinetic = {state.met.sticking, state.met.emitted, {}, {}};
     if (blend.share < 1) p.blend(blend.before, blend.share, state.met);
     state.defect = p.defect(-1, state.x, state.met);
     state.size = norm(state.defect);
@@ -259,7 +103,7 @@ Newton newton(const Problem& p, State& state, const Blend& blend, double scale, 
         // Nothing is gained by solving a step better than Newton's method squares its error.
         const double tolerance = std::clamp(1e-2 * state.size / scale, 1e-9, 1e-3);
         Vector step;
-        if (!p.newton_step(-1, state.met.slope, state.defect, tolerance, step)) return done;
+        if (!p.newton_step(-1, state.met, state.defect, tolerance, step)) return done;
         State next = backtrack(p, state, step, blend);
         done.change = largest_change(state.met, next.met);
         state = std::move(next);
@@ -297,21 +141,13 @@ double relax(const Problem& p, State& state, double scale, int& iterations) {
     return rest;
 }
 
-/// `a` with slopes as if it did not change with the arrivals.
-void hold(const Problem& p, Answer& a) {
-    const Answer fixed = a;
-    a.slope.assign(p.unknowns() * p.species(), 0.0);
-    p.blend(fixed, 0, a);
-}
-
 /// Arrivals at the answer of a surface that nothing has reached yet.
 Vector arrivals_at_bare(const Problem& p) {
     const Vector x(p.unknowns(), 0.0);
     Answer bare = p.answer(-1, x, false);
-    hold(p, bare);
+    p.hold(bare);
     Vector step;
-    if (!p.newton_step(-1, bare.slope, p.defect(-1, x, bare), 1e-6, step))
-        step.assign(x.size(), 1.0);
+    if (!p.newton_step(-1, bare, p.defect(-1, x, bare), 1e-6, step)) step.assign(x.size(), 1.0);
     return step;
 }
 
@@ -356,10 +192,10 @@ CoupledArrivals solve_coupled(const ExchangeOperator& exchange,
             return;
         }
         Vector step;
-        if (!p.newton_step(b, state.met.slope, defect, 1e-4, step)) {
+        if (!p.newton_step(b, state.met, defect, 1e-4, step)) {
             // Next to a change between two steady states: the answer at fixed sticking stands in.
-            hold(p, own);
-            RILLE_CHECK(p.newton_step(b, own.slope, defect, 1e-4, step), "transport of one batch");
+            p.hold(own);
+            RILLE_CHECK(p.newton_step(b, own, defect, 1e-4, step), "transport of one batch");
         }
         Vector moved = state.x;
         for (std::size_t i = 0; i < moved.size(); ++i)

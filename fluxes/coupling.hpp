@@ -19,10 +19,13 @@ struct NeutralAnswer {
 /// all batches, 0..7: with those of one.
 using AnswerOf = std::function<NeutralAnswer(int element, int batch, const double* neutrals)>;
 
+class FirstFlight;
+
 /// Where a neutral species comes from.
 struct NeutralSupply {
-    double open = 0;        ///< flux in the open [nm^-2 s^-1]
-    bool given_off = false; ///< the surface gives it off as well
+    double open = 0;                           ///< flux in the open [nm^-2 s^-1]
+    bool given_off = false;                    ///< the surface gives it off as well
+    const FirstFlight* first_flight = nullptr; ///< of what it gives off; null: by the cosine law
 };
 
 /// Impinging neutrals and the surface's answer to them, solved together.

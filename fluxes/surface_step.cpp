@@ -4,6 +4,7 @@
 #include "fluxes/coupling.hpp"
 #include "fluxes/direct_ions.hpp"
 #include "fluxes/exact_exchange.hpp"
+#include "fluxes/first_flight.hpp"
 #include "fluxes/ion_tables.hpp"
 #include "fluxes/reflected_ions.hpp"
 #include "geometry/check.hpp"
@@ -13,6 +14,7 @@
 
 #include <algorithm>
 #include <chrono>
+#include <map>
 #include <optional>
 
 namespace rille::fluxes {
@@ -211,6 +213,16 @@ std::unique_ptr<ExchangeOperator> exchange_of(const Setting& s, std::string& ine
     return std::make_unique<Exchange>(s.domain, s.surface, s.caster, options);
 }
 
+/// Found once for all species that leave by the same law. Where all else is exact four times the
+/// rays keep its error small.
+const FirstFlight& first_flight(const Setting& s, double cosine_power,
+                                std::map<double, FirstFlight>& flights) {
+    const int rays = s.sampling.rays_per_element * (s.domain.planar_contour() ? 4 : 1);
+    const FirstFlight::Options options{rays, s.sampling.seed, s.sampling.refresh};
+    return flights.try_emplace(cosine_power, s.domain, s.surface, s.caster, cosine_power, options)
+        .first->second;
+}
+
 /// Neutrals solved together with the sticking that the kinetics of the outermost material gives.
 CoupledArrivals gather_neutrals(const Setting& s, const IonArrivals& ions,
                                 const SurfaceStep* previous, std::string& inexact) {
@@ -218,9 +230,14 @@ CoupledArrivals gather_neutrals(const Setting& s, const IonArrivals& ions,
     CoupledArrivals none;
     none.batch_flux.resize(batches);
     if (s.sources.neutrals.empty()) return none;
+    std::map<double, FirstFlight> flights; // by the power of the cosine
     std::vector<NeutralSupply> supply;
-    for (const NeutralSource& source : s.sources.neutrals)
-        supply.push_back({source.flux, s.mechanism.gives_off(supply.size())});
+    for (const NeutralSource& source : s.sources.neutrals) {
+        const std::size_t k = supply.size();
+        supply.push_back({source.flux, s.mechanism.gives_off(k), nullptr});
+        if (supply.back().given_off && s.mechanism.cosine_power[k] != 1)
+            supply.back().first_flight = &first_flight(s, s.mechanism.cosine_power[k], flights);
+    }
     const std::unique_ptr<ExchangeOperator> exchange = exchange_of(s, inexact);
     const AnswerOf answer = [&](int e, int batch, const double* neutrals) {
         const SurfaceResponse r = s.respond_at(s.outermost(e), ions.at(e, batch), neutrals);

@@ -80,6 +80,9 @@ TEST_CASE("by-products are read", "[chemistry][by_products]") {
     CHECK(foreign->removal[0].leaves.size() == 1);
     CHECK(fluxes::deposited_materials(m) == std::vector<int>{1});
     CHECK(chemistry->standing.at(fluxes::Standing::illustrative) >= 3);
+    const auto narrow = load_with({"  Si: {cosine_power: {value: 2" + cited + "}\n", "Si"}).second;
+    REQUIRE(narrow);
+    CHECK(narrow->mechanism.cosine_power == std::vector<double>{2});
     // Amounts, and what does not stick.
     const auto gas = load_with({"  Si: {}\n", "{Si: {value: 2" + cited + "}"}).second;
     REQUIRE(gas);
@@ -131,6 +134,11 @@ TEST_CASE("faults of by-products are named and placed", "[chemistry][by_products
           std::string::npos);
     CHECK(problems_with("  Si: {film: Si, sticking: {value: 1.5" + cited + "}\n", "Si")
               .find("by_products.Si.sticking.value: \"1.5\" is out of range") != std::string::npos);
+    for (const char* power : {"0.4", "11", "-1"})
+        CHECK(problems_with(std::string("  Si: {cosine_power: {value: ") + power + cited + "}\n",
+                            "Si")
+                  .find("cosine_power.value: \"" + std::string(power) + "\" is out of range") !=
+              std::string::npos);
     CHECK(problems_with("  Si: {film: Si, sticking: 1}\n", "Si")
               .find("stands where a cited value is due") != std::string::npos);
     CHECK(problems_with("  Si: {films: Si}\n", "Si").find("films") != std::string::npos);
