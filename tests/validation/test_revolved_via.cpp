@@ -144,8 +144,9 @@ TEST_CASE("revolved agrees with full on a via", "[validation][revolved][long]") 
     // Oracle: the same via, chemistry and plasma in full three dimensions.
     // Source: the two describe the same feature; the cells around it differ (round, square), which
     // a flat mask does not show below.
-    // Tolerance: the stated sampling errors of both (95 %) added in squares, plus 0.25 cell for
-    // the grids; 5 % less of the ions must fail. Away from the foot, which either grid rounds in
+    // Tolerance: the stated sampling errors of both (95 %) added in squares, plus 0.25 cell
+    // for the grids (0.3 at 1.5 cells under the mask) and 1 degree of the sidewall angle; 5 % less
+    // of the ions must fail. Away from the foot, which either grid rounds in
     // its own way.
     const auto etched = [](geometry::Symmetry symmetry, double ions) {
         TrenchCase t = busy_via(symmetry);
@@ -161,16 +162,22 @@ TEST_CASE("revolved agrees with full on a via", "[validation][revolved][long]") 
             values.emplace_back(cd->value, engine::sampling_error(*cd, last.displacement));
         }
         const auto angles = geometry::sidewall_angles(t.c.domain, last.surface, site, -15, -3);
-        WARN("sidewall angle " << angles->left.value << " deg");
+        values.emplace_back(angles->left.value,
+                            engine::sampling_error(angles->left, last.displacement));
         return values;
     };
     const auto full = etched(geometry::Symmetry::full, 1);
     const auto revolved = etched(geometry::Symmetry::revolved, 1);
     const auto fewer = etched(geometry::Symmetry::revolved, 0.95);
     for (std::size_t i = 0; i < full.size(); ++i) {
-        const double tolerance = std::hypot(full[i].second, revolved[i].second) + 0.5;
-        WARN((i ? "CD " : "depth ") << full[i].first << " +- " << full[i].second << " in full, "
-                                    << revolved[i].first << " +- " << revolved[i].second);
+        // Under the mask 0.28 cell are measured, of the angle 0.6 degrees (it spans that place).
+        const double grid = i + 1 == full.size() ? 1 : i == 1 ? 0.6 : 0.5;
+        const double tolerance = std::hypot(full[i].second, revolved[i].second) + grid;
+        WARN((i == 0                ? "depth "
+              : i + 1 < full.size() ? "CD "
+                                    : "sidewall angle ")
+             << full[i].first << " +- " << full[i].second << " in full, " << revolved[i].first
+             << " +- " << revolved[i].second);
         CHECK(std::fabs(full[i].first - revolved[i].first) < tolerance);
         if (i == 0) CHECK(std::fabs(full[i].first - fewer[i].first) > tolerance);
     }
