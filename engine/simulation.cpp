@@ -23,6 +23,7 @@ using geometry::Surface;
 using geometry::Vec3;
 
 constexpr double touching = 1e-6;        // [cells] a front this near to a film has reached it
+constexpr double growth_move = 0.5;      // [cells] of a step at most where a film grows
 constexpr double shortest_move = 0.0625; // [cells] steps are not halved further
 constexpr double no_film_nm = 1e-9;      // thinner grown film counts as none
 
@@ -207,6 +208,8 @@ double Simulation::neck_limit(const Surface& surface, const fluxes::SurfaceStep&
     for (std::size_t e = 0; e < surface.size(); ++e) {
         const double growth = -solved.response[e].rate;
         if (growth <= 0) continue;
+        if (case_.refresh_move > growth_move)
+            limit = std::min(limit, growth_move * case_.domain.spacing / growth);
         const auto hit = caster.trace(surface.centre[e], surface.normal[e], static_cast<int>(e));
         if (hit.kind != geometry::Hit::Kind::surface) continue;
         limit = std::min(limit, std::max(hit.distance, case_.domain.spacing) / (8 * growth));

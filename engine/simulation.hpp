@@ -125,7 +125,8 @@ private:
     Trial try_advance(const fluxes::SurfaceStep&, double time, double max_move);
     Trial heun(double time_limit);
     /// Longest step [s] that leaves narrowing necks resolved: an eighth of the time in which the
-    /// growth on one side alone would close the gap (gaps below one cell count as one cell).
+    /// growth on one side alone would close the gap (gaps below one cell count as one cell); and
+    /// growth of half a cell where the front may move farther.
     double neck_limit(const geometry::Surface&, const fluxes::SurfaceStep&,
                       const geometry::RayCaster&) const;
     /// Where each element's displacement in a trial ends on the surface after it.

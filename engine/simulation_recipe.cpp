@@ -35,7 +35,8 @@ double film_top(const Case& c, const std::string& name) {
 void Simulation::begin_step() {
     if (finished()) return;
     step_start_s_ = time_s_;
-    pace_ = 0;
+    // Longer steps than half a cell only once the arrivals have been seen to change little.
+    pace_ = std::clamp(static_cast<int>(std::lround(std::log2(2 * case_.refresh_move))), 0, 2);
     start_distance_ = by_profile(recipe().end) ? distance_to_goal(surface_) : 0.0;
 }
 

@@ -144,8 +144,9 @@ TEST_CASE("revolved agrees with full on a via", "[validation][revolved][long]") 
     // Oracle: the same via, chemistry and plasma in full three dimensions.
     // Source: the two describe the same feature; the cells around it differ (round, square), which
     // a flat mask does not show below.
-    // Tolerance: the stated sampling errors of both (95 %) added in squares, plus 0.25 cell for
-    // the grids; 5 % less of the ions must fail. Away from the foot, which either grid rounds in
+    // Tolerance: the stated sampling errors of both (95 %) added in squares, plus 0.25 cell
+    // for the grids (0.3 at 1.5 cells under the mask) and 1 degree of the sidewall angle; 5 % less
+    // of the ions must fail. Away from the foot, which either grid rounds in
     // its own way.
     const auto etched = [](geometry::Symmetry symmetry, double ions) {
         TrenchCase t = busy_via(symmetry);
@@ -160,17 +161,51 @@ TEST_CASE("revolved agrees with full on a via", "[validation][revolved][long]") 
             const auto cd = geometry::cd_at(t.c.domain, last.surface, site, z);
             values.emplace_back(cd->value, engine::sampling_error(*cd, last.displacement));
         }
+        const auto angles = geometry::sidewall_angles(t.c.domain, last.surface, site, -15, -3);
+        values.emplace_back(angles->left.value,
+                            engine::sampling_error(angles->left, last.displacement));
         return values;
     };
     const auto full = etched(geometry::Symmetry::full, 1);
     const auto revolved = etched(geometry::Symmetry::revolved, 1);
     const auto fewer = etched(geometry::Symmetry::revolved, 0.95);
     for (std::size_t i = 0; i < full.size(); ++i) {
-        const double tolerance = std::hypot(full[i].second, revolved[i].second) + 0.5;
-        WARN((i ? "CD " : "depth ") << full[i].first << " +- " << full[i].second << " in full, "
-                                    << revolved[i].first << " +- " << revolved[i].second);
+        // Under the mask 0.28 cell are measured, of the angle 0.6 degrees (it spans that place).
+        const double grid = i + 1 == full.size() ? 1 : i == 1 ? 0.6 : 0.5;
+        const double tolerance = std::hypot(full[i].second, revolved[i].second) + grid;
+        WARN((i == 0                ? "depth "
+              : i + 1 < full.size() ? "CD "
+                                    : "sidewall angle ")
+             << full[i].first << " +- " << full[i].second << " in full, " << revolved[i].first
+             << " +- " << revolved[i].second);
         CHECK(std::fabs(full[i].first - revolved[i].first) < tolerance);
         if (i == 0) CHECK(std::fabs(full[i].first - fewer[i].first) > tolerance);
+    }
+}
+
+TEST_CASE("steps of a revolved run may be long", "[validation][revolved]") {
+    // Oracle: the same via by steps eight times shorter.
+    // Source: convergence in time (definition); walls that a step leaves behind must not take the
+    // reflected ions of the floor, which widened them by a share of the step.
+    // Tolerance: 0.1 cell of the depth, 0.2 of CDs; a depth 5 % off must fail.
+    const auto etched = [](double move) {
+        TrenchCase t = busy_via(geometry::Symmetry::revolved);
+        t.c.refresh_move = move;
+        t.add_step("main", 20);
+        const engine::SurfaceState last = run_quietly(t.c).last;
+        const auto site = engine::feature_sites(t.c)[0];
+        std::vector<double> values{
+            -geometry::floor_of(t.c.domain, last.surface, site)->centre.value};
+        for (const double z : {-3.0, -7.0, -11.0})
+            values.push_back(geometry::cd_at(t.c.domain, last.surface, site, z)->value);
+        return values;
+    };
+    const auto longer = etched(2), shorter = etched(0.25);
+    for (std::size_t i = 0; i < longer.size(); ++i) {
+        WARN((i ? "CD " : "depth ")
+             << longer[i] << " by long steps, " << shorter[i] << " by short");
+        CHECK(std::fabs(longer[i] - shorter[i]) < (i ? 0.4 : 0.2));
+        if (i == 0) CHECK(std::fabs(1.05 * longer[i] - shorter[i]) > 0.2);
     }
 }
 
