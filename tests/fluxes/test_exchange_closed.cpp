@@ -121,7 +121,8 @@ void compare(const std::map<std::string, double>& row, const std::vector<std::st
         const double exact = row.at(name);
         out.pulls.push_back((fault * mean.value - exact) * unit / mean.error);
         out.largest_error = std::max(out.largest_error, mean.error / exact);
-        out.largest_deviation = std::max(out.largest_deviation, std::fabs(mean.value / exact - 1));
+        out.largest_deviation =
+            std::max(out.largest_deviation, std::fabs(fault * mean.value / exact - 1));
     }
 }
 
