@@ -81,6 +81,7 @@ void RunOutput::write_pictures(const RunResult& result, const Metrics& metrics) 
     folder_.write(output_names::picture_svg, picture);
     folder_.write(output_names::picture_png, png_of(picture, png_scale));
     if (!result.shape.empty()) {
+        folder_.write(output_names::causes, causes_csv(case_, result.shape));
         const std::string causes = cause_picture_svg(case_, result.last, result.shape);
         folder_.write(output_names::causes_svg, causes);
         folder_.write(output_names::causes_png, png_of(causes, png_scale));
@@ -112,8 +113,6 @@ Metrics RunOutput::finish(const RunResult& result, const RunParts& parts) {
     if (parts.resolved_case && !parts_.resolved_case) write_case();
     if (parts.history) folder_.write(output_names::history, history_csv(case_, result.history));
     if (parts.profile) folder_.write(output_names::profile, profile_csv(case_, result.last));
-    if (parts.profile && !result.shape.empty())
-        folder_.write(output_names::causes, causes_csv(case_, result.shape));
     Metrics metrics =
         measure(case_, result.last, result.after, is_at_its_end(result.record.status));
     if (grids_ && metrics.is_final) grids_->assess(case_, metrics);

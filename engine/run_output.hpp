@@ -19,9 +19,11 @@ struct RunParts {
     bool resolved_case = true; ///< with copies of the files that it names
     bool frames = true;
     bool history = true;
-    bool profile = true; ///< with its causes and what a measured contour differs by
+    bool profile = true; ///< with what a measured contour differs by
     bool level_set = true;
-    bool pictures = true; ///< the profile's needs frames where a run may be taken up
+    /// With the table of what made the shape; the profile's needs frames where a run may be taken
+    /// up.
+    bool pictures = true;
     bool record = true;
 };
 

@@ -2,7 +2,6 @@
 #include "engine/simulation.hpp"
 
 #include "engine/arrivals_change.hpp"
-#include "engine/metrics.hpp"
 #include "engine/sources.hpp"
 #include "fluxes/surface_chemistry.hpp"
 #include "geometry/between_centres.hpp"
@@ -22,7 +21,6 @@ namespace {
 using geometry::Surface;
 using geometry::Vec3;
 
-constexpr double touching = 1e-6;        // [cells] a front this near to a film has reached it
 constexpr double growth_move = 0.5;      // [cells] of a step at most where a film grows
 constexpr double shortest_move = 0.0625; // [cells] steps are not halved further
 constexpr double no_film_nm = 1e-9;      // thinner grown film counts as none
@@ -336,54 +334,6 @@ Simulation::Trial Simulation::heun(double time_limit) {
         trial.at_end = ledger_.read(predicted.surface, later.cause, later.supply);
         return trial;
     }
-}
-
-double Simulation::distance_to_goal(const Surface& surface) const {
-    const StepEnd& end = recipe().end;
-    const auto film = std::find_if(case_.films.begin(), case_.films.end(),
-                                   [&](const geometry::Film& f) { return f.name == end.film; });
-    RILLE_CHECK(film != case_.films.end(), "unknown film " + end.film);
-    const auto& openings = case_.mask.openings;
-    const auto opening = std::find_if(openings.begin(), openings.end(),
-                                      [&](const geometry::Opening& o) { return o.name == end.at; });
-    RILLE_CHECK(opening != openings.end(), "unknown place " + end.at);
-    const geometry::FeatureSite site = feature_sites(case_)[opening - openings.begin()];
-    const auto floor = geometry::floor_of(case_.domain, surface, site);
-    if (!floor) return std::numeric_limits<double>::infinity();
-    double z = floor->centre.value;
-    if (end.kind == StepEnd::Kind::cleared)
-        z = std::max({z, floor->left_edge.value, floor->right_edge.value});
-    // A film that holds still stops the front on its top, to round-off.
-    return z - film->top - touching * case_.domain.spacing;
-}
-
-/// Given a trial that overshoots the goal, finds the time within the step at which the goal is met
-/// (to 1e-3 of the step, on the sub-cell surface) and returns the trial that ends there.
-Simulation::Trial Simulation::land_on_goal(Trial&& beyond, const fluxes::SurfaceStep& step) {
-    double early = 0, late = beyond.report.time;
-    double above = distance_to_goal(surface_), below = distance_to_goal(beyond.surface);
-    const double tolerance = 2e-4 * late;
-    Trial best = std::move(beyond);
-    for (int n = 0; n < 40 && late - early > tolerance; ++n) {
-        const double share = std::isfinite(above) ? above / (above - below) : 0.5;
-        // Secant, kept away from the ends so that the bracket shrinks from both sides.
-        const double between = n % 3 == 2 ? 0.5 : std::clamp(share, 1e-4, 1 - 1e-4);
-        const double time = early + between * (late - early);
-        Trial trial = try_advance(step, time, 2 * case_.refresh_move);
-        const double distance = distance_to_goal(trial.surface);
-        if (distance <= 0) {
-            trial.at_start = std::move(best.at_start);
-            trial.at_end = std::move(best.at_end);
-            best = std::move(trial);
-            late = time;
-            below = distance;
-        } else {
-            early = time;
-            above = distance;
-        }
-        if (std::fabs(below) < 1e-6 * case_.domain.spacing) break;
-    }
-    return best;
 }
 
 void Simulation::accept(Trial&& trial, const fluxes::SurfaceStep& step) {

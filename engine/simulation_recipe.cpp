@@ -2,6 +2,7 @@
 // How a run follows its recipe: when a step begins, how long it may go on, how it ends.
 #include "engine/simulation.hpp"
 
+#include "engine/metrics.hpp"
 #include "engine/number_text.hpp"
 #include "geometry/check.hpp"
 
@@ -12,6 +13,7 @@
 namespace rille::engine {
 namespace {
 
+constexpr double touching = 1e-6; // [cells] a front this near to a film has reached it
 constexpr double forever = std::numeric_limits<double>::infinity();
 
 bool by_profile(const StepEnd& end) {
@@ -52,6 +54,54 @@ double Simulation::step_end_time() const {
         break;
     }
     return step_start_s_ + recipe().no_longer_than_s;
+}
+
+double Simulation::distance_to_goal(const geometry::Surface& surface) const {
+    const StepEnd& end = recipe().end;
+    const auto film = std::find_if(case_.films.begin(), case_.films.end(),
+                                   [&](const geometry::Film& f) { return f.name == end.film; });
+    RILLE_CHECK(film != case_.films.end(), "unknown film " + end.film);
+    const auto& openings = case_.mask.openings;
+    const auto opening = std::find_if(openings.begin(), openings.end(),
+                                      [&](const geometry::Opening& o) { return o.name == end.at; });
+    RILLE_CHECK(opening != openings.end(), "unknown place " + end.at);
+    const geometry::FeatureSite site = feature_sites(case_)[opening - openings.begin()];
+    const auto floor = geometry::floor_of(case_.domain, surface, site);
+    if (!floor) return std::numeric_limits<double>::infinity();
+    double z = floor->centre.value;
+    if (end.kind == StepEnd::Kind::cleared)
+        z = std::max({z, floor->left_edge.value, floor->right_edge.value});
+    // A film that holds still stops the front on its top, to round-off.
+    return z - film->top - touching * case_.domain.spacing;
+}
+
+/// Given a trial that overshoots the goal, finds the time within the step at which the goal is met
+/// (to 1e-3 of the step, on the sub-cell surface) and returns the trial that ends there.
+Simulation::Trial Simulation::land_on_goal(Trial&& beyond, const fluxes::SurfaceStep& step) {
+    double early = 0, late = beyond.report.time;
+    double above = distance_to_goal(surface_), below = distance_to_goal(beyond.surface);
+    const double tolerance = 2e-4 * late;
+    Trial best = std::move(beyond);
+    for (int n = 0; n < 40 && late - early > tolerance; ++n) {
+        const double share = std::isfinite(above) ? above / (above - below) : 0.5;
+        // Secant, kept away from the ends so that the bracket shrinks from both sides.
+        const double between = n % 3 == 2 ? 0.5 : std::clamp(share, 1e-4, 1 - 1e-4);
+        const double time = early + between * (late - early);
+        Trial trial = try_advance(step, time, 2 * case_.refresh_move);
+        const double distance = distance_to_goal(trial.surface);
+        if (distance <= 0) {
+            trial.at_start = std::move(best.at_start);
+            trial.at_end = std::move(best.at_end);
+            best = std::move(trial);
+            late = time;
+            below = distance;
+        } else {
+            early = time;
+            above = distance;
+        }
+        if (std::fabs(below) < 1e-6 * case_.domain.spacing) break;
+    }
+    return best;
 }
 
 void Simulation::step(double no_later_than_s) {

@@ -15,7 +15,7 @@ namespace rille::engine {
 namespace {
 
 // Sizes as the poly-trench example leaves them, which are within a factor of two elsewhere.
-constexpr double record_bytes = 2e3, metrics_bytes = 8e3, case_bytes = 4e3, picture_bytes = 2.5e5;
+constexpr double record_bytes = 2e3, metrics_bytes = 8e3, case_bytes = 4e3, picture_bytes = 1.3e6;
 constexpr double profile_bytes_per_element = 500, frame_bytes_per_element = 900;
 constexpr double history_bytes_per_refresh = 250, grid_bytes_per_voxel = 6;
 constexpr std::size_t frames_a_run = 11;
@@ -68,7 +68,7 @@ StudyCost study_cost(const Study& study, int threads) {
     };
     leave(true, 2, record_bytes + metrics_bytes);
     leave(parts.profile, 1, profile_bytes_per_element * elements);
-    leave(parts.pictures, 4, picture_bytes);
+    leave(parts.pictures, 7, picture_bytes);
     leave(parts.history, 1, history_bytes_per_refresh * estimate.refreshes);
     leave(parts.frames, frames_a_run + 1, frames_a_run * frame_bytes_per_element * elements);
     leave(parts.resolved_case, 1 + study.base.inputs.size(), case_bytes);

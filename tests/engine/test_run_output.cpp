@@ -22,6 +22,12 @@ RunResult sample_result(const Case& c, double share, double time_s) {
     row.time_s = time_s;
     measure_row(c, result.last.surface, row);
     result.history = {row};
+    ShapePart wall;
+    wall.face = ShapePart::Face::left_wall;
+    const std::size_t amounts = fluxes::cause_count + fluxes::ion_paths + 1;
+    for (const double z : {-20.0, -40.0})
+        wall.places.push_back({z, 1, 30, 31 + share, std::vector<double>(amounts, 0.08)});
+    result.shape = {wall};
     result.write_level_set = [](const std::string& path) { std::ofstream(path) << "grid"; };
     return result;
 }
@@ -72,8 +78,9 @@ TEST_CASE("run output: the same run writes the same bytes") {
         output.add_frame(tests::trench_state(c, 0, 0));
         output.finish(sample_result(c, 0.8, 60));
     }
-    for (const char* name : {output_names::profile, output_names::history, output_names::metrics,
-                             output_names::series, output_names::picture_svg})
+    for (const char* name :
+         {output_names::profile, output_names::history, output_names::metrics, output_names::series,
+          output_names::picture_svg, output_names::causes, output_names::causes_svg})
         CHECK(read_file(scratch / (std::string("a/") + name)) ==
               read_file(scratch / (std::string("b/") + name)));
 }

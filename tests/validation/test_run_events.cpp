@@ -96,6 +96,19 @@ std::optional<double> metric(const engine::Metrics& metrics, const std::string& 
     return {};
 }
 
+/// The shipped chemistry without what surfaces give off.
+std::string without_by_products(const std::string& name) {
+    std::ifstream file(std::string(RILLE_ROOT) + "/configs/chemistries/" + name + ".yaml");
+    std::string kept, line;
+    bool listing = false; // inside the section by_products
+    while (std::getline(file, line)) {
+        listing = line.rfind("by_products:", 0) == 0 || (listing && line.rfind("  ", 0) == 0);
+        if (listing || line.find("leaves_as:") != std::string::npos) continue;
+        kept += (line.rfind("neutrals:", 0) == 0 ? "neutrals: []" : line) + "\n";
+    }
+    return kept;
+}
+
 /// Last refresh that ended before `time`.
 double refresh_before(const engine::RunResult& result, double time) {
     double before = 0;
@@ -203,13 +216,19 @@ TEST_CASE("a thick liner is opened and stays on the walls", "[validation][events
 TEST_CASE("sixty-four pairs cost little more than one film", "[validation][events]") {
     const std::string bulk = "  - {name: bulk, material: Al, thickness: semi-infinite}";
     const std::string until = "until: {reaches: bulk, at: trench centre}, no_longer_than: 300 s";
-    const Outcome one = run_text(milling_case(
-        "  - {name: film, material: Si, thickness: 51.2 nm}\n" + bulk, "60", "", until));
-    const Outcome many = run_text(
-        milling_case("  - {name: pair, repeat: 64, films: [{name: a, material: Si, "
-                     "thickness: 0.5 nm}, {name: b, material: SiO2, thickness: 0.3 nm}]}\n" +
-                         bulk,
-                     "60", "", until));
+    // Sputtered atoms that come back would change with each film, and steps would follow them.
+    const tests::ScratchFolder folder;
+    std::ofstream(folder / "nothing-returns.yaml") << without_by_products("argon-milling");
+    const auto run_of = [&](const std::string& films) {
+        std::string text = milling_case(films + bulk, "60", "", until);
+        const std::string name = "argon-milling";
+        text.replace(text.find(name), name.size(), "nothing-returns.yaml");
+        return run_text(text, folder / "");
+    };
+    const Outcome one = run_of("  - {name: film, material: Si, thickness: 51.2 nm}\n");
+    const Outcome many =
+        run_of("  - {name: pair, repeat: 64, films: [{name: a, material: Si, "
+               "thickness: 0.5 nm}, {name: b, material: SiO2, thickness: 0.3 nm}]}\n");
     REQUIRE(one.result.record.status == "done");
     REQUIRE(many.result.record.status == "done");
     const auto cost = [](const Outcome& o) {
