@@ -134,8 +134,8 @@ TEST_CASE("shape ledger: what no cause explains is told", "[causes]") {
               Approx(0.1 * wall_speed * std::sqrt(1 + lean * lean)).margin(1e-9));
 }
 
-// Oracle: a round hole, the same in r and z and as a surface in full. Source: each other.
-// Tolerance: 1e-6 nm; 1 % in full, whose elements are flat.
+// Oracle: the wall of a round hole in r and z, moved out by half a nanometre.
+// Source: derived here. Tolerance: 1e-6 nm.
 TEST_CASE("shape ledger: round holes have one wall", "[causes]") {
     Case c = pocket_case();
     c.domain.symmetry = geometry::Symmetry::revolved;
