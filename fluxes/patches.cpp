@@ -200,4 +200,13 @@ void Patches::spread(const double* patch, double* element) const {
     }
 }
 
+void Patches::project(const double* place, double* patch) const {
+    std::fill(patch, patch + size(), 0.0);
+    for (std::size_t k = 0; k < order_.size(); ++k) {
+        const Part& part = part_[k];
+        for (int c = 0; c < 3; ++c)
+            if (part.weight[c] != 0) patch[part.patch + c] += part.weight[c] * place[k];
+    }
+}
+
 } // namespace rille::fluxes
