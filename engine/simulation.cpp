@@ -117,10 +117,7 @@ Simulation::Simulation(const Case& the_case)
     : case_(the_case), stack_(the_case.films), front_(initial_front(the_case)),
       surface_(geometry::extract_surface(front_)), films_(initial_films(the_case, surface_.size())),
       bases_(initial_bases(the_case)), open_field_(the_case), ledger_(the_case) {
-    for (int b = 0; b < fluxes::batches; ++b)
-        error_fields_.push_back({"displacement error " + std::to_string(b),
-                                 geometry::Carry::intensive,
-                                 std::vector<double>(surface_.size(), 0.0)});
+    displacement_errors_.assign(fluxes::batches, std::vector<double>(surface_.size(), 0.0));
     ledger_.stand(0, surface_);
     begin_step();
 }
@@ -246,6 +243,23 @@ Simulation::Trial Simulation::try_advance(const fluxes::SurfaceStep& step, doubl
     return trial;
 }
 
+/// Takes what lies on the present surface along to where a trial ends.
+void Simulation::carry(const Trial& trial, const std::vector<Carried>& carried) {
+    const Stopwatch watch(timings_.carry);
+    std::vector<geometry::SurfaceField> fields;
+    for (const Carried& c : carried)
+        for (auto& value : c.values)
+            fields.push_back({"", c.how, std::move(value)});
+    std::vector<geometry::SurfaceField*> all;
+    for (auto& field : fields)
+        all.push_back(&field);
+    geometry::carry_fields(surface_, trial.surface, trial.report.moved, case_.domain, all);
+    auto field = fields.begin();
+    for (const Carried& c : carried)
+        for (auto& value : c.values)
+            value = std::move((field++)->value);
+}
+
 std::vector<geometry::BetweenCentres> Simulation::feet(const Trial& trial) const {
     const geometry::NearestElement nearest(case_.domain, trial.surface);
     std::vector<geometry::BetweenCentres> feet(surface_.size());
@@ -302,20 +316,12 @@ Simulation::Trial Simulation::heun(double time_limit) {
         const double longest = std::ldexp(case_.refresh_move, -pace_);
         Trial predicted = try_advance(now, limit, longest);
         geometry::GrownFilms films = predicted.films;
-        {
-            const Stopwatch watch(timings_.carry);
-            std::vector<geometry::SurfaceField> thickness;
-            std::vector<geometry::SurfaceField*> fields;
-            for (auto& film : films.thickness)
-                thickness.push_back({"film", geometry::Carry::per_area, film});
-            for (auto& field : thickness)
-                fields.push_back(&field);
-            geometry::carry_fields(surface_, predicted.surface, predicted.report.moved,
-                                   case_.domain, fields);
-            for (std::size_t f = 0; f < films.thickness.size(); ++f)
-                films.thickness[f] = thickness[f].value;
-        }
-        const fluxes::SurfaceStep later = solve(predicted.surface, films, &now);
+        fluxes::SurfaceStep start; // what the solve starts from
+        start.ion_tables = now.ion_tables;
+        start.neutral = now.neutral;
+        carry(predicted, {{geometry::Carry::per_area, films.thickness},
+                          {geometry::Carry::intensive, start.neutral}});
+        const fluxes::SurfaceStep later = solve(predicted.surface, films, &start);
         std::vector<geometry::BetweenCentres> there;
         {
             const Stopwatch watch(timings_.carry);
@@ -343,22 +349,12 @@ void Simulation::accept(Trial&& trial, const fluxes::SurfaceStep& step) {
         for (const auto& batch : step.rate_batch)
             mean += batch[e] / step.rate_batch.size();
         for (std::size_t b = 0; b < step.rate_batch.size(); ++b)
-            error_fields_[b].value[e] += (step.rate_batch[b][e] - mean) * dt;
+            displacement_errors_[b][e] += (step.rate_batch[b][e] - mean) * dt;
     }
-    {
-        const Stopwatch watch(timings_.carry);
-        std::vector<geometry::SurfaceField> thickness;
-        for (auto& film : trial.films.thickness)
-            thickness.push_back({"film", geometry::Carry::per_area, std::move(film)});
-        std::vector<geometry::SurfaceField*> fields;
-        for (auto& field : thickness)
-            fields.push_back(&field);
-        for (auto& field : error_fields_)
-            fields.push_back(&field);
-        geometry::carry_fields(surface_, trial.surface, trial.report.moved, case_.domain, fields);
-        for (std::size_t f = 0; f < thickness.size(); ++f)
-            films_.thickness[f] = std::move(thickness[f].value);
-    }
+    carry(trial, {{geometry::Carry::per_area, trial.films.thickness},
+                  {geometry::Carry::intensive, present_.neutral},
+                  {geometry::Carry::intensive, displacement_errors_}});
+    films_.thickness = std::move(trial.films.thickness);
     ledger_.add(dt, trial.at_start, trial.at_end);
     front_ = std::move(trial.front);
     surface_ = std::move(trial.surface);

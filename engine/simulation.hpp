@@ -81,7 +81,9 @@ public:
     const geometry::Surface& surface() const { return surface_; }
     const geometry::GrownFilms& films() const { return films_; }
     /// Displacement error of the elements by batch: [batch][element], nm, along -normal.
-    std::vector<std::vector<double>> displacement_errors() const;
+    const std::vector<std::vector<double>>& displacement_errors() const {
+        return displacement_errors_;
+    }
     /// Outermost material of each element.
     std::vector<int> materials() const;
     /// Arrivals and rates on the present surface under the plasma of the present (or last) step;
@@ -129,6 +131,11 @@ private:
     /// growth of half a cell where the front may move farther.
     double neck_limit(const geometry::Surface&, const fluxes::SurfaceStep&,
                       const geometry::RayCaster&) const;
+    struct Carried {
+        geometry::Carry how;
+        std::vector<std::vector<double>>& values; ///< each by elements
+    };
+    void carry(const Trial&, const std::vector<Carried>&);
     /// Where each element's displacement in a trial ends on the surface after it.
     std::vector<geometry::BetweenCentres> feet(const Trial&) const;
     void average_rates(fluxes::SurfaceStep& now, const fluxes::SurfaceStep& later,
@@ -149,8 +156,9 @@ private:
     geometry::Front front_;
     geometry::Surface surface_;
     geometry::GrownFilms films_;
-    geometry::FilmBases bases_;                        ///< one per grown film
-    std::vector<geometry::SurfaceField> error_fields_; ///< one per batch
+    geometry::FilmBases bases_;                            ///< one per grown film
+    std::vector<std::vector<double>> displacement_errors_; ///< [batch][element]
+    /// Of the present surface if valid; else neutral alone, from where the next solve starts.
     fluxes::SurfaceStep present_;
     bool present_valid_ = false;
     /// What the solve of the present arrivals started from: it is done again after a resume.

@@ -157,11 +157,4 @@ double Simulation::step_progress() const {
     return std::clamp(std::max(by_time, by_depth), 0.0, 1.0);
 }
 
-std::vector<std::vector<double>> Simulation::displacement_errors() const {
-    std::vector<std::vector<double>> errors;
-    for (const auto& field : error_fields_)
-        errors.push_back(field.value);
-    return errors;
-}
-
 } // namespace rille::engine

@@ -13,8 +13,8 @@ template <class Archive, class Self>
 void Simulation::visit(Archive& archive, Self& self) {
     archive(self.films_.material);
     archive(self.films_.thickness);
-    for (auto& field : self.error_fields_)
-        archive(field.value);
+    for (auto& error : self.displacement_errors_)
+        archive(error);
     self.bases_.visit(archive, self.bases_);
     self.open_field_.visit(archive, self.open_field_);
     self.ledger_.visit(archive, self.ledger_);
@@ -95,8 +95,8 @@ Simulation::Simulation(const Case& the_case, const std::string& saved) : Simulat
     archive(refresh_);
     archive(health_);
     if (!archive.at_end()) throw NumericsError("a saved state does not end where it should");
-    for (const auto& field : error_fields_)
-        RILLE_CHECK(field.value.size() == surface_.size(), "saved fields of another front");
+    for (const auto& error : displacement_errors_)
+        RILLE_CHECK(error.size() == surface_.size(), "saved fields of another front");
     if (solved) arrivals();
 }
 

@@ -2,7 +2,6 @@
 #include "fluxes/coupled_equations.hpp"
 
 #include "fluxes/first_flight.hpp"
-#include "fluxes/krylov.hpp"
 
 #include <tbb/blocked_range.h>
 #include <tbb/parallel_for.h>
@@ -141,31 +140,6 @@ void CoupledEquations::hold(CoupledAnswer& a) const {
     a.slope.assign(unknowns() * species_, 0.0);
     if (!flight_.empty()) a.gain.assign(unknowns() * species_, 0.0);
     blend(fixed, 0, a);
-}
-
-bool CoupledEquations::newton_step(int batch, const CoupledAnswer& a, const Vector& defect,
-                                   double tolerance, Vector& step) const {
-    step = defect;
-    Vector leaving(unknowns()), arrived(unknowns()), given_off(a.gain.empty() ? 0 : unknowns());
-    const std::size_t K = species_;
-    const auto matrix = [&](const double* in, double* out) {
-        for (std::size_t e = 0; e < n_; ++e)
-            for (std::size_t k = 0; k < K; ++k) {
-                const std::size_t row = (e * K + k) * K;
-                double value = in[k * n_ + e];
-                for (std::size_t l = 0; l < K; ++l)
-                    value -= a.slope[row + l] * in[l * n_ + e];
-                leaving[k * n_ + e] = value;
-                if (given_off.empty()) continue;
-                given_off[k * n_ + e] = 0;
-                for (std::size_t l = 0; l < K; ++l)
-                    given_off[k * n_ + e] += a.gain[row + l] * in[l * n_ + e];
-            }
-        transport(batch, leaving, given_off, arrived);
-        for (std::size_t i = 0; i < arrived.size(); ++i)
-            out[i] = in[i] - arrived[i];
-    };
-    return solve_linear(matrix, defect, step, tolerance).converged;
 }
 
 } // namespace rille::fluxes

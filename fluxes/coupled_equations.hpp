@@ -6,6 +6,7 @@
 
 #include <cmath>
 #include <cstddef>
+#include <memory>
 #include <vector>
 
 namespace rille::fluxes {
@@ -45,11 +46,9 @@ public:
     void blend(const CoupledAnswer& before, double share, CoupledAnswer& a) const;
     /// Slopes as if the answer did not change with the arrivals.
     void hold(CoupledAnswer&) const;
-    /// Solves (I - A (I - slope) - T gain) step = defect; whether that went well.
-    bool newton_step(int batch, const CoupledAnswer&, const Vector& defect, double tolerance,
-                     Vector& step) const;
 
 private:
+    friend class NewtonStep;
     void set_units(const std::vector<NeutralSupply>&);
     void at_element(std::size_t e, int batch, const Vector& x, CoupledAnswer&) const;
     void transport(int batch, const Vector& leaving, const Vector& given_off, Vector& out) const;
@@ -60,6 +59,28 @@ private:
     std::vector<const FirstFlight*> flight_; ///< per species, or null; empty if all are
     std::size_t n_, species_;
     bool by_products_ = false;
+};
+
+/// The linear equations of Newton's method at one answer: (I - A (I - slope) - T gain) step =
+/// defect. Where all exchange goes through fewer places they are solved between those: with B to
+/// the places, P from them and G = I - slope, step = defect + P m and m = B G (defect + P m). The
+/// equations and the answer outlive it.
+class NewtonStep {
+public:
+    NewtonStep(const CoupledEquations&, const CoupledAnswer&);
+    ~NewtonStep();
+    /// Whether it went well.
+    bool solve(int batch, const std::vector<double>& defect, double tolerance,
+               std::vector<double>& step) const;
+
+private:
+    class Places;
+    bool solve_by_elements(int batch, const std::vector<double>& defect, double tolerance,
+                           std::vector<double>& step) const;
+
+    const CoupledEquations& equations_;
+    const CoupledAnswer& answer_;
+    std::unique_ptr<const Places> places_; ///< or null
 };
 
 } // namespace rille::fluxes

@@ -103,7 +103,7 @@ Newton newton(const Problem& p, State& state, const Blend& blend, double scale, 
         // Nothing is gained by solving a step better than Newton's method squares its error.
         const double tolerance = std::clamp(1e-2 * state.size / scale, 1e-9, 1e-3);
         Vector step;
-        if (!p.newton_step(-1, state.met, state.defect, tolerance, step)) return done;
+        if (!NewtonStep(p, state.met).solve(-1, state.defect, tolerance, step)) return done;
         State next = backtrack(p, state, step, blend);
         done.change = largest_change(state.met, next.met);
         state = std::move(next);
@@ -147,7 +147,8 @@ Vector arrivals_at_bare(const Problem& p) {
     Answer bare = p.answer(-1, x, false);
     p.hold(bare);
     Vector step;
-    if (!p.newton_step(-1, bare, p.defect(-1, x, bare), 1e-6, step)) step.assign(x.size(), 1.0);
+    if (!NewtonStep(p, bare).solve(-1, p.defect(-1, x, bare), 1e-6, step))
+        step.assign(x.size(), 1.0);
     return step;
 }
 
@@ -158,9 +159,15 @@ CoupledArrivals solve_coupled(const ExchangeOperator& exchange,
                               const std::vector<std::vector<double>>& guess) {
     const Problem p(exchange, supply, answer);
     const std::size_t n = p.elements();
-    Vector x = arrivals_at_bare(p);
-    for (std::size_t k = 0; k < guess.size() && k < p.species(); ++k)
-        for (std::size_t e = 0; e < n && guess[k].size() == n && p.unit(k) > 0; ++e)
+    const auto guessed = [&](std::size_t k) {
+        return k < guess.size() && guess[k].size() == n && p.unit(k) > 0;
+    };
+    bool all = true;
+    for (std::size_t k = 0; k < p.species(); ++k)
+        all = all && guessed(k);
+    Vector x = all ? Vector(p.unknowns()) : arrivals_at_bare(p);
+    for (std::size_t k = 0; k < p.species(); ++k)
+        for (std::size_t e = 0; e < n && guessed(k); ++e)
             x[k * n + e] = guess[k][e] / p.unit(k);
     double scale = std::sqrt(double(p.species())) * norm(exchange.direct());
     scale = std::max(scale, 1e-300);
@@ -184,6 +191,7 @@ CoupledArrivals solve_coupled(const ExchangeOperator& exchange,
     }
     result.flux = by_species(p, state.x);
     result.batch_flux.resize(batches);
+    const NewtonStep last(p, state.met);
     tbb::parallel_for(0, batches, [&](int b) {
         Answer own = p.answer(b, state.x, false);
         const Vector defect = p.defect(b, state.x, own);
@@ -192,10 +200,10 @@ CoupledArrivals solve_coupled(const ExchangeOperator& exchange,
             return;
         }
         Vector step;
-        if (!p.newton_step(b, state.met, defect, 1e-4, step)) {
+        if (!last.solve(b, defect, 1e-4, step)) {
             // Next to a change between two steady states: the answer at fixed sticking stands in.
             p.hold(own);
-            RILLE_CHECK(p.newton_step(b, own, defect, 1e-4, step), "transport of one batch");
+            RILLE_CHECK(NewtonStep(p, own).solve(b, defect, 1e-4, step), "transport of one batch");
         }
         Vector moved = state.x;
         for (std::size_t i = 0; i < moved.size(); ++i)

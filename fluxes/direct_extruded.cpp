@@ -36,7 +36,8 @@ public:
                     tables_.ions()[s].flux * sky_.flux(tables_.in_plane(static_cast<int>(s)), e);
         });
         for (std::size_t s = 0; s < ions; ++s) {
-            flux_row_.push_back(averaged_rows(tables_.flux_tally(static_cast<int>(s)), s));
+            places_.push_back(places(s));
+            flux_row_.push_back(averaged_rows(tables_.flux_tally(static_cast<int>(s)), places_[s]));
             std::vector<double> own(count);
             over_elements([&](int e) {
                 own[e] = on_row(tables_.angles(), &flux_row_[s][e * tables_.angles().size()],
@@ -61,28 +62,42 @@ private:
 
     double own_angle(int e) const { return std::atan2(normal_[e].x, normal_[e].z); }
 
-    /// Rows of one table: per element from its visible intervals, then averaged along the arc.
-    std::vector<float> averaged_rows(int table, std::size_t ion) const {
-        const std::size_t count = surface_.size(), angles = tables_.angles().size();
+    /// Of every element's visible intervals, in the in-plane distribution of one ion.
+    struct Seen {
+        InPlane::Place low, high;
+    };
+    std::vector<std::vector<Seen>> places(std::size_t ion) const {
         const InPlane& plane = tables_.in_plane(static_cast<int>(ion));
-        std::vector<double> raw(count * angles, 0.0);
+        std::vector<std::vector<Seen>> seen(seen_.size());
         over_elements([&](int e) {
-            for (const Visible& v : seen_[e]) {
-                tables_.add(table, plane.place(v.high), 1.0 / gauss.size(), &raw[e * angles]);
-                tables_.add(table, plane.place(v.low), -1.0 / gauss.size(), &raw[e * angles]);
-            }
+            for (const Visible& v : seen_[e])
+                seen[e].push_back({plane.place(v.low), plane.place(v.high)});
         });
-        std::vector<float> rows(count * angles);
+        return seen;
+    }
+
+    /// Rows of one table: per element from its visible intervals, then averaged along the arc.
+    std::vector<float> averaged_rows(int table, const std::vector<std::vector<Seen>>& seen) const {
+        const std::size_t count = surface_.size(), angles = tables_.angles().size();
+        std::vector<float> raw(count * angles);
         over_elements([&](int e) {
             std::vector<double> row(angles, 0.0);
-            for (int i = average_.first[e]; i < average_.first[e + 1]; ++i) {
-                const double* part = &raw[average_.parts[i].element * angles];
-                const double weight = average_.parts[i].weight;
-                for (std::size_t k = 0; k < angles; ++k)
-                    row[k] += weight * std::max(0.0, part[k]);
+            for (const Seen& s : seen[e]) {
+                tables_.add(table, s.high, 1.0 / gauss.size(), row.data());
+                tables_.add(table, s.low, -1.0 / gauss.size(), row.data());
             }
             for (std::size_t k = 0; k < angles; ++k)
-                rows[e * angles + k] = static_cast<float>(row[k]);
+                raw[e * angles + k] = static_cast<float>(std::max(0.0, row[k]));
+        });
+        std::vector<float> rows(count * angles, 0.0F);
+        over_elements([&](int e) {
+            float* row = &rows[e * angles];
+            for (int i = average_.first[e]; i < average_.first[e + 1]; ++i) {
+                const float* part = &raw[average_.parts[i].element * angles];
+                const auto weight = static_cast<float>(average_.parts[i].weight);
+                for (std::size_t k = 0; k < angles; ++k)
+                    row[k] += weight * part[k];
+            }
         });
         return rows;
     }
@@ -91,7 +106,7 @@ private:
     void tabulate(int m) {
         const std::size_t count = surface_.size(), angles = tables_.angles().size();
         const int ion = tables_.tallies()[m].ion;
-        gathered_.row.push_back(averaged_rows(m, ion));
+        gathered_.row.push_back(averaged_rows(m, places_[ion]));
         gathered_.row_of.push_back(m);
         gathered_.factor.push_back(1.0);
         gathered_.tally.emplace_back(count, 0.0);
@@ -120,7 +135,8 @@ private:
     ArcAverage average_;
     std::vector<geometry::Vec3> normal_;
     std::vector<std::vector<Visible>> seen_;
-    std::vector<std::vector<float>> flux_row_;  ///< [ion], like Gathered::row
+    std::vector<std::vector<std::vector<Seen>>> places_; ///< [ion][e]
+    std::vector<std::vector<float>> flux_row_;           ///< [ion], like Gathered::row
     std::vector<std::vector<double>> own_flux_; ///< [ion][e]: the row at the element's own normal
     DirectIons::Gathered gathered_;
 };

@@ -116,8 +116,26 @@ void ExactExchange::gather(const double* emitted, double* mean) const {
 void ExactExchange::apply(int, const double* emitted, double* arrival) const {
     std::vector<double> mean(patches_->size());
     gather(emitted, mean.data());
+    from_places(mean.data(), arrival);
+}
+
+void ExactExchange::from_places(const double* mean, double* arrival) const {
     std::fill(arrival, arrival + size(), 0.0);
-    patches_->spread(mean.data(), arrival);
+    patches_->spread(mean, arrival);
+}
+
+void ExactExchange::between_places(const std::vector<const double*>& kept, double* matrix) const {
+    const std::size_t n = patches_->size(), columns = patches_->order().size();
+    tbb::parallel_for(std::size_t(0), n, [&](std::size_t i) {
+        std::vector<double> row(columns);
+        for (std::size_t b = 0; b < kept.size(); ++b) {
+            if (!kept[b]) continue;
+            for (std::size_t k = 0; k < columns; ++k)
+                row[k] =
+                    exchange_[i * columns + k] / patches_->area(i) * kept[b][patches_->order()[k]];
+            patches_->project(row.data(), matrix + (b * n + i) * n);
+        }
+    });
 }
 
 /// Solves (1 - F t) change = defect between patches that give back the share t of what arrives.

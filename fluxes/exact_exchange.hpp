@@ -50,6 +50,10 @@ public:
     void apply(int batch, const double* emitted, double* arrival) const override;
     const std::vector<double>& direct(int = -1) const override { return direct_; }
     bool sampled() const override { return false; }
+    std::size_t places() const override { return patches_->size(); }
+    void to_places(const double* emitted, double* mean) const override { gather(emitted, mean); }
+    void from_places(const double* mean, double* arrival) const override;
+    void between_places(const std::vector<const double*>& kept, double* matrix) const override;
     /// Share of what an element emits that leaves at once: of extruded elements the same as
     /// direct(), of revolved ones so only in the mean over a patch.
     const std::vector<double>& escape() const { return escape_; }

@@ -25,6 +25,16 @@ public:
     virtual const std::vector<double>& direct(int batch = -1) const = 0;
     /// Whether batches differ: an exact operator has no sampling error.
     virtual bool sampled() const = 0;
+
+    /// Fewer places than elements through which all exchange goes: A = from_places to_places.
+    /// 0: there are none.
+    virtual std::size_t places() const { return 0; }
+    virtual void to_places(const double* /*emitted*/, double* /*mean*/) const {}
+    virtual void from_places(const double* /*mean*/, double* /*arrival*/) const {}
+    /// matrix[b * places * places + i * places + j] of to_places diag(kept[b]) from_places;
+    /// kept[b][e] by elements. A null pointer stands for zeros and its block is left alone.
+    virtual void between_places(const std::vector<const double*>& /*kept*/,
+                                double* /*matrix*/) const {}
 };
 
 } // namespace rille::fluxes

@@ -20,9 +20,18 @@ struct Drawn {
 };
 Drawn draw_from(const std::vector<double>& below, double u) {
     const double at = u * below.back();
-    auto above = std::upper_bound(below.begin(), below.end(), at);
-    if (above == below.end()) above = std::lower_bound(below.begin(), below.end(), below.back());
-    const std::size_t i = above - below.begin() - 1;
+    // Nobody can guess the way: a search without branches for the first above.
+    const double* first = below.data();
+    for (std::size_t count = below.size(); count > 0;) {
+        const std::size_t half = count / 2;
+        const bool beyond = first[half] <= at;
+        first += beyond ? half + 1 : 0;
+        count = beyond ? count - half - 1 : half;
+    }
+    std::size_t above = first - below.data();
+    if (above == below.size())
+        above = std::lower_bound(below.begin(), below.end(), below.back()) - below.begin();
+    const std::size_t i = above - 1;
     return {i, std::clamp((at - below[i]) / (below[i + 1] - below[i]), 0.0, 1.0)};
 }
 
@@ -50,6 +59,10 @@ ExtrudedStrikes::ExtrudedStrikes(const StrikeScene& scene)
     : scene_(scene), sky_(scene.domain, scene.surface) {
     const IonTables& tables = scene.direct.tables();
     const int count = static_cast<int>(scene.surface.size());
+    over_.resize(count);
+    tbb::parallel_for(0, count, [&](int e) {
+        if (scene.bound(scene.material[e], 0) > 0) over_[e] = sky_over(e);
+    });
     guide_.resize(tables.ions().size());
     for (std::size_t s = 0; s < guide_.size(); ++s) {
         const InPlane& plane = tables.in_plane(static_cast<int>(s));
@@ -68,23 +81,37 @@ ExtrudedStrikes::ExtrudedStrikes(const StrikeScene& scene)
     }
 }
 
-/// What any place of the element may see: along a segment both horizons turn one way.
-Visible ExtrudedStrikes::sky_over(int e) const {
-    if (sky_.floating_pieces()) return {-0.5 * pi, 0.5 * pi};
-    Visible sky{0.5 * pi, -0.5 * pi};
-    for (const double part : {0.0, 1.0})
-        for (const Visible& seen : sky_.visible(e, part)) {
-            sky.low = std::min(sky.low, seen.low);
-            sky.high = std::max(sky.high, seen.high);
+/// Along a segment both horizons turn one way: its ends decide.
+ExtrudedStrikes::Sky ExtrudedStrikes::sky_over(int e) const {
+    if (sky_.floating_pieces()) return {{-0.5 * pi, 0.5 * pi}, {0.5 * pi, -0.5 * pi}};
+    Sky sky{{0.5 * pi, -0.5 * pi}, {-0.5 * pi, 0.5 * pi}};
+    for (const double part : {0.0, 1.0}) {
+        const auto seen = sky_.visible(e, part);
+        if (seen.empty()) sky.every = {0.5 * pi, -0.5 * pi};
+        for (const Visible& v : seen) {
+            sky.any.low = std::min(sky.any.low, v.low);
+            sky.any.high = std::max(sky.any.high, v.high);
+            sky.every.low = std::max(sky.every.low, v.low);
+            sky.every.high = std::min(sky.every.high, v.high);
         }
+    }
     return sky;
+}
+
+bool ExtrudedStrikes::sees(int e, double part, double phi) const {
+    constexpr double margin = 1e-9; // round-off of horizons
+    const Visible& every = over_[e].every;
+    if (every.low + margin < phi && phi < every.high - margin) return true;
+    const auto seen = sky_.visible(e, part);
+    return std::any_of(seen.begin(), seen.end(),
+                       [&](const Visible& v) { return v.low <= phi && phi <= v.high; });
 }
 
 ExtrudedStrikes::Bins ExtrudedStrikes::guide_of(const InPlane& plane, const PlaneTable& table,
                                                 int e) const {
     Bins bins;
     const int material = scene_.material[e];
-    const Visible sky = scene_.bound(material, 0) > 0 ? sky_over(e) : Visible{};
+    const Visible& sky = over_[e].any;
     if (!(sky.low < sky.high)) return bins;
     bins.low = plane.place(sky.low);
     bins.high = plane.place(sky.high);
@@ -134,11 +161,7 @@ Strike ExtrudedStrikes::draw(int ion, int, const ScrambledPoints& points, std::u
                          (sine < 0 ? -1 : 1);
     const Vec3& normal = scene_.surface.normal[e];
     const double received = normal.z + slope * normal.x;
-    if (received <= 0) return {};
-    const auto seen = sky_.visible(e, place.part);
-    if (std::none_of(seen.begin(), seen.end(),
-                     [&](const Visible& v) { return v.low <= phi && phi <= v.high; }))
-        return {};
+    if (received <= 0 || !sees(e, place.part, phi)) return {};
     const auto first = table.below.begin() + table.first_node[b];
     const auto end = table.below.begin() + table.first_node[b + 1];
     const auto drawn_node = std::upper_bound(first, end - 1, p2[0] * table.share[b]);

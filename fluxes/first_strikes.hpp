@@ -70,6 +70,9 @@ public:
                 int count) const;
 
 private:
+    struct Sky { ///< of an element: what any of its places may see, what every one sees
+        Visible any, every;
+    };
     struct Bins { ///< in-plane bins that an element may receive ions from
         InPlane::Place low, high;
         std::vector<double> below; ///< running sums of the guide, one more than bins
@@ -81,11 +84,13 @@ private:
         std::vector<Bins> element;
         std::vector<double> below; ///< running sums over elements, one more than elements
     };
-    Visible sky_over(int element) const;
+    Sky sky_over(int element) const;
+    bool sees(int element, double part, double phi) const;
     Bins guide_of(const InPlane&, const PlaneTable&, int element) const;
 
     const StrikeScene& scene_;
     OpenSky sky_;
+    std::vector<Sky> over_;    ///< per element; of those that reflect nothing it is empty
     std::vector<Guide> guide_; ///< per ion species
 };
 

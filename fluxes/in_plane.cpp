@@ -183,24 +183,18 @@ InPlane::Place InPlane::place(double phi) const {
     return {bin, whole > 0 ? std::clamp(gap(angle[bin], phi) / whole, 0.0, 1.0) : 0.5};
 }
 
-double InPlane::share_below(double phi) const {
+InPlane::Below InPlane::below(double phi) const {
     const Place p = place(phi);
-    return share[p.bin] + p.part * (share[p.bin + 1] - share[p.bin]);
-}
-
-double InPlane::moment_below(double phi) const {
-    const Place p = place(phi);
-    if (p.part == 0) return moment[p.bin];
-    if (p.part == 1) return moment[p.bin + 1];
+    if (p.part == 0) return {share[p.bin], moment[p.bin]};
+    if (p.part == 1) return {share[p.bin + 1], moment[p.bin + 1]};
+    const double mass = share[p.bin + 1] - share[p.bin];
     // Uniform in sin(phi) inside the bin, then shifted so that the bin's own moment is kept.
     const double a = angle[p.bin], b = angle[p.bin + 1];
-    const double whole = std::sin(b) - std::sin(a);
-    const double mass = share[p.bin + 1] - share[p.bin];
-    const double density = mass / whole;
+    const double density = mass / (std::sin(b) - std::sin(a));
     const double left = density * (std::cos(a) - std::cos(phi));
     const double all = density * (std::cos(a) - std::cos(b));
     const double excess = moment[p.bin + 1] - moment[p.bin] - all;
-    return moment[p.bin] + left + p.part * excess;
+    return {share[p.bin] + p.part * mass, moment[p.bin] + left + p.part * excess};
 }
 
 } // namespace rille::fluxes

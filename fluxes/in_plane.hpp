@@ -38,8 +38,13 @@ struct InPlane {
         double part = 0;
     };
     Place place(double phi) const;
-    double share_below(double phi) const;
-    double moment_below(double phi) const;
+    /// Flux at angles below phi, and the integral of the slope over it.
+    struct Below {
+        double share = 0, moment = 0;
+    };
+    Below below(double phi) const;
+    double share_below(double phi) const { return below(phi).share; }
+    double moment_below(double phi) const { return below(phi).moment; }
 };
 
 InPlane resolve_in_plane(const IonLaw&);

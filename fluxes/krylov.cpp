@@ -12,6 +12,36 @@ namespace {
 /// What Eigen's iterative solvers ask of a matrix that exists only as a product.
 class Product;
 
+/// What they ask of a preconditioner: one that is given, or none.
+class Precondition {
+public:
+    template <typename Matrix>
+    Precondition& analyzePattern(const Matrix&) {
+        return *this;
+    }
+    template <typename Matrix>
+    Precondition& factorize(const Matrix&) {
+        return *this;
+    }
+    template <typename Matrix>
+    Precondition& compute(const Matrix&) {
+        return *this;
+    }
+    Eigen::ComputationInfo info() { return Eigen::Success; }
+    void use(const LinearOperator& apply) { apply_ = apply ? &apply : nullptr; }
+    template <typename Rhs>
+    Eigen::VectorXd solve(const Eigen::MatrixBase<Rhs>& given) const {
+        const Eigen::VectorXd b = given;
+        if (!apply_) return b;
+        Eigen::VectorXd x(b.size());
+        (*apply_)(b.data(), x.data());
+        return x;
+    }
+
+private:
+    const LinearOperator* apply_ = nullptr;
+};
+
 } // namespace
 } // namespace rille::fluxes
 
@@ -72,10 +102,12 @@ struct generic_product_impl<rille::fluxes::Product, Rhs, SparseShape, DenseShape
 namespace rille::fluxes {
 
 LinearSolution solve_linear(const LinearOperator& apply, const std::vector<double>& rhs,
-                            std::vector<double>& x, double tolerance) {
+                            std::vector<double>& x, double tolerance,
+                            const LinearOperator& precondition) {
     const auto n = static_cast<Eigen::Index>(rhs.size());
     const Product matrix(apply, n);
-    Eigen::BiCGSTAB<Product, Eigen::IdentityPreconditioner> solver(matrix);
+    Eigen::BiCGSTAB<Product, Precondition> solver(matrix);
+    solver.preconditioner().use(precondition);
     solver.setTolerance(tolerance);
     solver.setMaxIterations(2000);
     const Eigen::Map<const Eigen::VectorXd> b(rhs.data(), n);

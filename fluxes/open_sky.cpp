@@ -28,8 +28,8 @@ double positive_part(const InPlane& plane, double alpha, double beta, double low
             std::clamp(std::atan2(beta < 0 ? alpha : -alpha, std::fabs(beta)), low, high);
         (at_low ? high : low) = root;
     }
-    return alpha * (plane.share_below(high) - plane.share_below(low)) +
-           beta * (plane.moment_below(high) - plane.moment_below(low));
+    const InPlane::Below above = plane.below(high), below = plane.below(low);
+    return alpha * (above.share - below.share) + beta * (above.moment - below.moment);
 }
 
 } // namespace

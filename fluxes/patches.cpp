@@ -200,4 +200,17 @@ void Patches::spread(const double* patch, double* element) const {
     }
 }
 
+void Patches::project(const double* place, double* patch) const {
+    std::fill(patch, patch + size(), 0.0);
+    for (std::size_t k = 0; k < order_.size();) {
+        const int at = part_[k].patch, last = std::min<int>(3, static_cast<int>(size()) - at);
+        std::array<double, 3> sum{};
+        for (; k < order_.size() && part_[k].patch == at; ++k)
+            for (int c = 0; c < 3; ++c)
+                sum[c] += part_[k].weight[c] * place[k];
+        for (int c = 0; c < last; ++c)
+            patch[at + c] += sum[c];
+    }
+}
+
 } // namespace rille::fluxes

@@ -45,6 +45,9 @@ public:
     /// element += arrivals from other elements, given by their means over patches: the mean
     /// emission seen is a parabola through three patches of one smooth piece; means are kept.
     void spread(const double* patch, double* element) const;
+    /// The transposed: patch = sum over places in the walking order of place[k] times the weight
+    /// that spread gives the patch there.
+    void project(const double* place, double* patch) const;
 
 private:
     struct Part { ///< value of an element = sum of weight[k] mean of patch + k

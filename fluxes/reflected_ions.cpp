@@ -80,24 +80,28 @@ public:
             result.by_bounces.assign(apart ? batches : 1,
                                      std::vector<double>(bounce_classes * slots));
         std::vector<double> up(surface_.size(), 0.0), along(surface_.size(), 0.0);
+        const double share = apart ? 1.0 : 1.0 / batches;
         double lost = 0, incident = 0;
         for (const IonSource& ion : ions_)
             incident += ion.flux * domain_.base_area();
-        for (Chunk& chunk : chunks) {
-            const double share = apart ? 1.0 : 1.0 / batches;
-            for (const Deposit& d : chunk.deposits) {
-                result.value[chunk.batch][d.slot % slots] += d.value;
-                if (options_.bounces)
-                    result.by_bounces[apart ? chunk.batch : 0][d.slot] += share * d.value;
+        // Each sum in the order of the chunks; batch after batch lie apart.
+        tbb::parallel_for(0, batches + 2, [&](int part) {
+            for (const Chunk& chunk : chunks) {
+                if (part == chunk.batch)
+                    for (const Deposit& d : chunk.deposits)
+                        result.value[part][d.slot % slots] += d.value;
+                if (part == batches && options_.bounces)
+                    for (const Deposit& d : chunk.deposits)
+                        result.by_bounces[apart ? chunk.batch : 0][d.slot] += share * d.value;
+                if (part <= batches) continue;
+                lost += chunk.lost / batches;
+                for (const Origin& o : chunk.origins) {
+                    up[o.element] += o.up;
+                    along[o.element] += o.along;
+                }
             }
-            for (const Origin& o : chunk.origins) {
-                up[o.element] += o.up;
-                along[o.element] += o.along;
-            }
-            lost += chunk.lost / batches;
-            std::vector<Deposit>().swap(chunk.deposits);
-            std::vector<Origin>().swap(chunk.origins);
-        }
+        });
+        chunks.clear();
         result.from_angle = angles_of(up, along);
         if (options_.averaged) {
             average(result.value, tallies_.size());

@@ -8,6 +8,7 @@
 #include <algorithm>
 #include <cmath>
 #include <map>
+#include <numeric>
 
 namespace rille::fluxes {
 namespace {
@@ -81,32 +82,35 @@ RoundProfile::RoundProfile(const geometry::Domain& domain, const geometry::Surfa
         bore_ = bore_ && (k <= bottom_ ? step <= tolerance_ : step >= -tolerance_);
     }
     rising_ = bore_ && bottom_ == 0;
-    find_bore_points();
+    to_rim_ = strings_to(rim_);
+    every_.resize(point_.size());
+    std::iota(every_.begin(), every_.end(), 1);
 }
 
-/// Of the vertices from the lowest one on those where the profile does not turn away from the axis:
-/// a line that leaves the neighbours of another to the outside leaves that one there as well.
-void RoundProfile::find_bore_points() {
-    for (int k = 0; k < static_cast<int>(point_.size()); ++k) {
-        bore_before_.push_back(bore_points_.size());
-        if (k < bottom_ || k > rim_) continue;
-        const PlanePoint& p = point_[k];
-        if (k > bottom_ && k < rim_) {
-            const PlanePoint &a = point_[k - 1], &b = point_[k + 1];
-            if (a.z < p.z && p.z < b.z && p.x > a.x + (p.z - a.z) / (b.z - a.z) * (b.x - a.x))
-                continue;
+/// Of each vertex from the lowest one on, the next of a string pulled taut from there to `vertex`
+/// along the wall, the wall on its outer side. A line's distance from the axis is convex over its
+/// height: where it leaves the vertices of that string to the outside, it leaves all others.
+std::vector<int> RoundProfile::strings_to(int vertex) const {
+    std::vector<int> next(point_.size(), -1);
+    for (int k = vertex - 1; k >= bottom_; --k) {
+        const PlanePoint& from = point_[k];
+        next[k] = k + 1;
+        for (int t = k + 1; t < vertex; t = next[t]) {
+            const PlanePoint &p = point_[t], &to = point_[next[t]];
+            if (!(from.z < p.z && p.z < to.z)) break;
+            if (p.x < from.x + (p.z - from.z) / (to.z - from.z) * (to.x - from.x)) break;
+            next[k] = next[t];
         }
-        bore_points_.push_back(p);
     }
-    bore_before_.push_back(bore_points_.size());
+    return next;
 }
 
 BetweenRings RoundProfile::what_stands_between() const {
     BetweenRings between;
     between.point = &point_;
-    between.bore = &bore_points_;
     between.last_edge = static_cast<std::size_t>(bore_ ? bottom_ : rim_);
-    if (bore_) between.last_bore = bore_points_.size();
+    between.next = &every_;
+    if (bore_) between.first_bore = bottom_, between.last_bore = rim_;
     return between;
 }
 
@@ -152,7 +156,7 @@ double RoundProfile::by_horizons(const RingPoint& from, int place) const {
     constexpr double half_turn = 3.14159265358979323846;
     const double r = from.at.x;
     double narrowest = point_[rim_].x;
-    for (int k = place + 1; k < rim_; ++k)
+    for (int k = place + 1; k < rim_; k = to_rim_[k])
         if (point_[k].z > from.at.z) narrowest = std::min(narrowest, point_[k].x);
     // Azimuths from the outward radius: planes that miss the narrowest circle see nothing.
     const double first = narrowest < r ? half_turn - std::asin(narrowest / r) : 0.0;
@@ -162,9 +166,9 @@ double RoundProfile::by_horizons(const RingPoint& from, int place) const {
         const double azimuth = first + (half_turn - first) * part;
         const double cosine = std::cos(azimuth), sine = std::sin(azimuth);
         double low = 0, high = HUGE_VAL; // tangents of the angle from the vertical
-        for (std::size_t k = bore_before_[place + 1]; k < bore_points_.size(); ++k) {
-            const double rise = bore_points_[k].z - from.at.z;
-            const double root2 = bore_points_[k].x * bore_points_[k].x - r * r * sine * sine;
+        for (int k = place + 1; k >= 0; k = to_rim_[k]) {
+            const double rise = point_[k].z - from.at.z;
+            const double root2 = point_[k].x * point_[k].x - r * r * sine * sine;
             if (!(rise > 0)) continue;
             if (!(root2 > 0)) {
                 high = -1;
@@ -182,8 +186,9 @@ double RoundProfile::by_horizons(const RingPoint& from, int place) const {
             low = level > 0 ? std::max(low, -up / level) : HUGE_VAL;
         if (!(low < high)) continue;
         const auto integral = [&](double tangent) {
-            const double angle = std::atan(tangent), s = std::sin(angle), c = std::cos(angle);
-            return 0.5 * (up * s * s + level * (angle - s * c));
+            const double secant2 = 1 + tangent * tangent;
+            return 0.5 / secant2 * tangent * (up * tangent - level) +
+                   0.5 * level * std::atan(tangent);
         };
         sum += 0.5 * gauss_16().weight[g % 16] * (integral(high) - integral(low));
     }
@@ -197,8 +202,8 @@ double RoundProfile::by_windows(const RingPoint& from, int place) const {
     BetweenRings between = what_stands_between();
     between.own[0] = {std::size_t(place), std::size_t(place + 1)};
     if (bore_ && place + 1 >= bottom_) {
-        between.first_bore = bore_before_[place + 1];
-        between.beside[between.beside_count++] = place + 1;
+        between.next = &to_rim_;
+        between.first_bore = place + 1;
     }
     double sum = 0;
     for (int g = 0; g < 48; ++g) {
@@ -238,8 +243,9 @@ double RoundProfile::sky(int place) const {
 }
 
 /// Exchange of two patches, as straight frusta, over the azimuths that nothing hides. Where they
-/// lie close to each other they are halved.
-double RoundProfile::by_azimuths(const Patches& patches, int i, int j) const {
+/// lie close to each other they are halved. next: strings_to the lower end of the higher one.
+double RoundProfile::by_azimuths(const Patches& patches, int i, int j,
+                                 const std::vector<int>& next) const {
     const auto corner = [&](int p) {
         return p < int(patches.size()) ? patches.first(p) : int(order_.size());
     };
@@ -251,11 +257,10 @@ double RoundProfile::by_azimuths(const Patches& patches, int i, int j) const {
         const int p = side == 0 ? i : j;
         between.rings.own[side] = {std::size_t(corner(p)), std::size_t(corner(p + 1))};
     }
-    if (corner(low) >= bottom_ && bore_) {
-        between.rings.first_bore = bore_before_[corner(low + 1)];
-        between.rings.last_bore = bore_before_[corner(high) + 1];
-        between.rings.beside = {std::size_t(corner(low + 1)), std::size_t(corner(high))};
-        between.rings.beside_count = 2;
+    if (bore_ && corner(high) > bottom_) {
+        between.rings.next = &next;
+        between.rings.first_bore = std::max(corner(low + 1), bottom_);
+        between.rings.last_bore = corner(high);
     }
     const double both = from.measure() * to.measure();
     return both > 0 ? integrate(from, to, 0, between) / both * patches.area(i) * patches.area(j)
@@ -329,6 +334,7 @@ std::vector<double> RoundProfile::factors(const Patches& patches) const {
         }
     };
     tbb::parallel_for(0, n, [&](int i) { // row i up to the diagonal, and its mirror image
+        const std::vector<int> next = strings_to(end[i]);
         for (int j = 0; j <= i; ++j) {
             if (end[i] >= rim_) continue; // the flat outside sees sky alone
             const auto height = [&](int v) { return point_[end[v]].z; };
@@ -339,7 +345,7 @@ std::vector<double> RoundProfile::factors(const Patches& patches) const {
                 by_discs(i, j);
                 if (i != j) by_discs(j, i);
             } else {
-                const double all = by_azimuths(patches, i, j);
+                const double all = by_azimuths(patches, i, j, next);
                 spread(i, j, all);
                 if (i != j) spread(j, i, all);
             }

@@ -42,7 +42,7 @@ public:
 private:
     bool is_clear(double low, double high) const;
     bool is_open_disc(int vertex) const;
-    void find_bore_points();
+    std::vector<int> strings_to(int vertex) const;
     struct Chord {
         PlanePoint start, end;
         PlanePoint at(double part) const {
@@ -61,7 +61,7 @@ private:
     double by_discs(int place) const;
     double by_horizons(const RingPoint& from, int place) const;
     double by_windows(const RingPoint& from, int place) const;
-    double by_azimuths(const Patches&, int i, int j) const;
+    double by_azimuths(const Patches&, int i, int j, const std::vector<int>& next) const;
     double integrate(const Chord& from, const Chord& to, int halvings, Between&) const;
     RingPoint on_chord(int first, int last, double part) const;
 
@@ -74,8 +74,8 @@ private:
     int bottom_ = 0;                ///< the lowest vertex, or one as low nearer to the axis
     bool bore_ = false;             ///< whether it only falls before that and only rises after
     bool rising_ = false;           ///< whether it only rises
-    std::vector<PlanePoint> bore_points_;  ///< BetweenRings::bore, where bore_
-    std::vector<std::size_t> bore_before_; ///< of these before each vertex
+    std::vector<int> to_rim_;       ///< strings_to(rim)
+    std::vector<int> every_;        ///< the next vertex of each
 };
 
 } // namespace rille::fluxes

@@ -53,12 +53,67 @@ double highest_cosine(const PlanePoint& from, const PlanePoint& to, const Betwee
         if (t > 1e-9 && rest > 1e-9)
             least = std::min(least, (p.x * p.x - rest * rest * a - t * t * b) / (t * rest));
     };
-    for (std::size_t k = between.first_bore; k < between.last_bore; ++k)
-        look((*between.bore)[k]);
-    for (int k = 0; k < between.beside_count; ++k)
-        look((*between.point)[between.beside[k]]);
+    for (int k = between.first_bore; k >= 0; k = (*between.next)[k]) {
+        look((*between.point)[k]);
+        if (k == between.last_bore) break;
+    }
     return least / (2 * from.x * to.x);
 }
+
+/// Integral over azimuths, given by their cosines c, of (a1 + b1 c) (a2 + b2 c) / (near + f (1 -
+/// c))^2.
+///
+/// With k = 1 + near / f and D = k - c the integrand is (N0 / D^2 - N1 / D + N2) / f^2, N0 to N2
+/// the value, slope and curvature of the numerator at c = k, and with t the tangent of half the
+/// azimuth the integral of 1 / D is 2 atan(t sqrt((k + 1) / (k - 1))) / sqrt(k^2 - 1), that of 1 /
+/// D^2 is (k (integral of 1 / D) + sine / D) / (k^2 - 1). Source: derived here, by differentiation.
+class Window {
+public:
+    Window(double a1, double b1, double a2, double b2, double f, double near)
+        : a1_(a1), b1_(b1), a2_(a2), b2_(b2), f_(f), near_(near), over_(near / f) {
+        const double one = (a1 + b1) + b1 * over_, two = (a2 + b2) + b2 * over_;
+        n0_ = one * two, n1_ = one * b2 + two * b1, n2_ = b1 * b2;
+        square_ = over_ * (2 + over_); // k^2 - 1
+        root_ = std::sqrt(square_);
+        closed_ = over_ > 1e-12 && over_ < 1e3;
+    }
+    double operator()(double low, double high) const { // of the cosine
+        low = std::clamp(low, -1.0, 1.0), high = std::clamp(high, -1.0, 1.0);
+        return closed_ ? up_to(low) - up_to(high) : by_points(std::acos(high), std::acos(low));
+    }
+
+private:
+    double up_to(double c) const {
+        const double s = std::sqrt(1 - c), t = std::sqrt(1 + c); // sine and cosine of the half
+        const double azimuth = 2 * std::atan2(s, t);
+        const double first = 2 / root_ * std::atan2((2 + over_) * s, root_ * t);
+        const double second = ((1 + over_) * first + s * t / (over_ + (1 - c))) / square_;
+        return (n0_ * second - n1_ * first + n2_ * azimuth) / (f_ * f_);
+    }
+    /// Where near is much more than f the integrand is smooth; where it vanishes the azimuth is
+    /// 2 peak sinh(v), which spreads the peak evenly over v.
+    double by_points(double from, double to) const {
+        const double peak = std::sqrt(std::max(0.5 * over_, 1e-20));
+        const double a = std::asinh(from / (2 * peak)), b = std::asinh(to / (2 * peak));
+        const auto by = [&](const auto& rule) {
+            double sum = 0;
+            for (std::size_t i = 0; i < rule.node.size(); ++i) {
+                const double v = std::exp(a + (b - a) * rule.node[i]);
+                const double azimuth = peak * (v - 1 / v), half = std::sin(0.5 * azimuth);
+                const double c = 1 - 2 * half * half, d = near_ + 2 * f_ * half * half;
+                sum += rule.weight[i] * peak * (v + 1 / v) * (a1_ + b1_ * c) * (a2_ + b2_ * c) /
+                       (d * d);
+            }
+            return sum * (b - a);
+        };
+        return peak > 0.5 ? by(gauss_8()) : by(gauss_16());
+    }
+
+    double a1_, b1_, a2_, b2_, f_, near_;
+    double over_; ///< near / f
+    double n0_, n1_, n2_, square_, root_;
+    bool closed_;
+};
 
 } // namespace
 
@@ -166,26 +221,7 @@ double ring_kernel(const RingPoint& from, const RingPoint& to, const BetweenRing
     }
     std::sort(scratch.begin(), scratch.end(),
               [](const CosineRange& p, const CosineRange& q) { return p.low < q.low; });
-    const double f = 2 * r1 * r2, e = f + (r1 - r2) * (r1 - r2) + rise * rise;
-    // distance^2 = e - f cos = (e - f) + 2 f sin^2(azimuth / 2): azimuth = 2 peak sinh(v) spreads
-    // the peak of places close to each other evenly over v.
-    const double peak = std::sqrt(std::max((e - f) / (2 * f), 1e-20));
-    const auto window = [&](double low, double high) { // of the cosine
-        const double a = std::asinh(std::acos(std::clamp(high, -1.0, 1.0)) / (2 * peak));
-        const double b = std::asinh(std::acos(std::clamp(low, -1.0, 1.0)) / (2 * peak));
-        const auto by = [&](const auto& rule) {
-            double sum = 0;
-            for (std::size_t i = 0; i < rule.node.size(); ++i) {
-                const double v = std::exp(a + (b - a) * rule.node[i]);
-                const double azimuth = peak * (v - 1 / v), half = std::sin(0.5 * azimuth);
-                const double c = 1 - 2 * half * half, d = (e - f) + 2 * f * half * half;
-                sum +=
-                    rule.weight[i] * peak * (v + 1 / v) * (a1 + b1 * c) * (a2 + b2 * c) / (d * d);
-            }
-            return sum * (b - a);
-        };
-        return peak > 0.5 ? by(gauss_8()) : by(gauss_16());
-    };
+    const Window window(a1, b1, a2, b2, 2 * r1 * r2, (r1 - r2) * (r1 - r2) + rise * rise);
     double sum = 0, at = range.low;
     for (const CosineRange& hidden : scratch) {
         if (hidden.low > at) sum += window(at, std::min(hidden.low, range.high));

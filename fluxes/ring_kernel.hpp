@@ -5,6 +5,7 @@
 #include "fluxes/unrolled_chain.hpp"
 
 #include <array>
+#include <cstddef>
 #include <vector>
 
 namespace rille::fluxes {
@@ -41,13 +42,11 @@ CosineRange crossing(const PlanePoint& from, const PlanePoint& to, const PlanePo
 struct BetweenRings {
     const std::vector<PlanePoint>* point = nullptr;
     std::size_t first_edge = 0, last_edge = 0; ///< edges k -> k + 1, solid on one side, any kind
-    /// Vertices with solid outside them. Where the profile turns away from the axis a vertex hides
-    /// nothing that its neighbours leave: `bore` need not hold it.
-    const std::vector<PlanePoint>* bore = nullptr;
-    std::size_t first_bore = 0, last_bore = 0; ///< of `bore`
-    /// Vertices of `point` like that next to the rings, whether in `bore` or not; used ones.
-    std::array<std::size_t, 2> beside{};
-    int beside_count = 0;
+    /// Vertices with solid outside them, from `first_bore` by way of `next` to `last_bore`; -1:
+    /// none. A vertex outside the straight line between two others hides nothing that those leave:
+    /// `next` may pass it by.
+    const std::vector<int>* next = nullptr;
+    int first_bore = -1, last_bore = -1;
     /// Edges that belong to the rings themselves, first and last: facing says what they hide.
     std::array<std::array<std::size_t, 2>, 2> own{};
     bool is_own(std::size_t edge) const {
@@ -57,8 +56,8 @@ struct BetweenRings {
 
 /// Integral over the azimuth, both ways round, of cos cos / (pi distance^2) between two rings where
 /// they face and nothing stands between: per area of `to`, the factor from `from`, divided by the
-/// azimuth's 2 pi. 16 Gauss points a window, 8 where the rings are farther apart than their
-/// radii: the integrand is smooth there.
+/// azimuth's 2 pi. In closed form; by 8 Gauss points a window where the rings are much farther
+/// apart than their radii: there that would lose digits, and the integrand is smooth.
 double ring_kernel(const RingPoint& from, const RingPoint& to, const BetweenRings&,
                    std::vector<CosineRange>& scratch);
 

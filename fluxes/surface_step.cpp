@@ -267,6 +267,8 @@ void tabulate(const Setting& s, const IonArrivals& ions, SurfaceStep& step) {
     for_elements(s.surface.size(), [&](int e) {
         const auto neutrals = at_element(step.neutral, e);
         const double* bounced = ions.reflected.data() + std::size_t(e) * ions.tallies;
+        const bool any_bounced =
+            std::any_of(bounced, bounced + ions.tallies, [](double tally) { return tally != 0; });
         const geometry::Vec3& n = s.surface.normal[e];
         const double own = s.domain.planar_contour() ? std::atan2(n.x, n.z)
                                                      : std::acos(std::clamp(n.z, -1.0, 1.0));
@@ -276,7 +278,7 @@ void tabulate(const Setting& s, const IonArrivals& ions, SurfaceStep& step) {
             direct[m] = ions.direct->tally_row(m, e);
         for (std::size_t a = 0; a < angles; ++a) {
             const double left =
-                ions.reflected_from.empty()
+                ions.reflected_from.empty() || !any_bounced
                     ? 1.0
                     : share_after_turn(own, ions.reflected_from[e], rates.angles[a]);
             for (int m = 0; m < ions.tallies; ++m)
