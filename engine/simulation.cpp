@@ -1,5 +1,6 @@
 // SPDX-License-Identifier: Apache-2.0
 #include "engine/simulation.hpp"
+#include "engine/error_drift.hpp"
 
 #include "engine/arrivals_change.hpp"
 #include "engine/sources.hpp"
@@ -344,6 +345,12 @@ void Simulation::accept(Trial&& trial, const fluxes::SurfaceStep& step) {
             mean += batch[e] / step.rate_batch.size();
         for (std::size_t b = 0; b < step.rate_batch.size(); ++b)
             error_fields_[b].value[e] += (step.rate_batch[b][e] - mean) * dt;
+    }
+    if (case_.domain.planar_contour()) {
+        std::vector<std::vector<double>*> errors;
+        for (auto& field : error_fields_)
+            errors.push_back(&field.value);
+        drift_along_contour(surface_, step.rates, dt, errors);
     }
     {
         const Stopwatch watch(timings_.carry);
