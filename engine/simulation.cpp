@@ -339,19 +339,11 @@ Simulation::Trial Simulation::heun(double time_limit) {
 
 void Simulation::accept(Trial&& trial, const fluxes::SurfaceStep& step) {
     const double dt = trial.report.time;
-    for (std::size_t e = 0; e < surface_.size() && !step.rate_batch.empty(); ++e) {
-        double mean = 0;
-        for (const auto& batch : step.rate_batch)
-            mean += batch[e] / step.rate_batch.size();
-        for (std::size_t b = 0; b < step.rate_batch.size(); ++b)
-            error_fields_[b].value[e] += (step.rate_batch[b][e] - mean) * dt;
-    }
-    if (case_.domain.planar_contour()) {
-        std::vector<std::vector<double>*> errors;
-        for (auto& field : error_fields_)
-            errors.push_back(&field.value);
-        drift_along_contour(surface_, step.rates, dt, errors);
-    }
+    std::vector<std::vector<double>*> errors;
+    for (auto& field : error_fields_)
+        errors.push_back(&field.value);
+    add_errors(step.rate_batch, dt, errors);
+    if (case_.domain.planar_contour()) drift_along_contour(surface_, step.rates, dt, errors);
     {
         const Stopwatch watch(timings_.carry);
         std::vector<geometry::SurfaceField> thickness;
