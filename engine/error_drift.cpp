@@ -65,6 +65,18 @@ Source along(const Surface& surface, int e, double distance) {
 
 } // namespace
 
+void add_errors(const std::vector<std::vector<double>>& rate_batch, double time,
+                std::vector<std::vector<double>>& errors) {
+    if (rate_batch.empty()) return;
+    for (std::size_t e = 0; e < rate_batch[0].size(); ++e) {
+        double mean = 0;
+        for (const auto& batch : rate_batch)
+            mean += batch[e] / rate_batch.size();
+        for (std::size_t b = 0; b < rate_batch.size(); ++b)
+            errors[b][e] += (rate_batch[b][e] - mean) * time;
+    }
+}
+
 void drift_along_contour(const Surface& surface, const NormalRates& rates, double time,
                          std::vector<std::vector<double>>& errors) {
     const int size = static_cast<int>(surface.size());

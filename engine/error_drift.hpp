@@ -8,6 +8,11 @@
 
 namespace rille::engine {
 
+/// Adds to errors[b][element] what the rate of batch b is off the mean of all batches, times `time`
+/// [s]. Nothing if `rate_batch` is empty.
+void add_errors(const std::vector<std::vector<double>>& rate_batch, double time,
+                std::vector<std::vector<double>>& errors);
+
 /// Errors of displacement [nm, recession positive; one per element] after `time` [s] of a contour's
 /// motion at these rates. A dent tilts the surface beside it, which etches at another rate R(psi):
 /// to first order it moves along the contour with -dR/dpsi, down a wall that straight ions graze.

@@ -345,13 +345,7 @@ Simulation::Trial Simulation::heun(double time_limit) {
 
 void Simulation::accept(Trial&& trial, const fluxes::SurfaceStep& step) {
     const double dt = trial.report.time;
-    for (std::size_t e = 0; e < surface_.size() && !step.rate_batch.empty(); ++e) {
-        double mean = 0;
-        for (const auto& batch : step.rate_batch)
-            mean += batch[e] / step.rate_batch.size();
-        for (std::size_t b = 0; b < step.rate_batch.size(); ++b)
-            displacement_errors_[b][e] += (step.rate_batch[b][e] - mean) * dt;
-    }
+    add_errors(step.rate_batch, dt, displacement_errors_);
     if (case_.domain.planar_contour())
         drift_along_contour(surface_, step.rates, dt, displacement_errors_);
     carry(trial, {{geometry::Carry::per_area, trial.films.thickness},
