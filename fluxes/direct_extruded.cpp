@@ -100,15 +100,17 @@ private:
             for (std::size_t k = 0; k < angles; ++k)
                 raw[e * angles + k] = static_cast<float>(std::max(0.0, row[k]));
         });
-        std::vector<float> rows(count * angles, 0.0F);
+        std::vector<float> rows(count * angles);
         over_elements([&](int e) {
-            float* row = &rows[e * angles];
+            std::vector<double> row(angles, 0.0);
             for (int i = average_->first[e]; i < average_->first[e + 1]; ++i) {
                 const float* part = &raw[average_->parts[i].element * angles];
-                const auto weight = static_cast<float>(average_->parts[i].weight);
+                const double weight = average_->parts[i].weight;
                 for (std::size_t k = 0; k < angles; ++k)
                     row[k] += weight * part[k];
             }
+            for (std::size_t k = 0; k < angles; ++k)
+                rows[e * angles + k] = static_cast<float>(row[k]);
         });
         return rows;
     }
