@@ -18,13 +18,21 @@ struct GridRun {
     std::string failure;  ///< why there are no metrics
     std::vector<Metric> metrics;
     double wall_seconds = 0;
+    /// By how much [cells, 0 to 0.5] the edges of openings lie elsewhere between its nodes than on
+    /// the grid that it is compared with; not kept.
+    double edge_offset = 0.5;
 };
 
 /// A bound on the error that the grid of `own_spacing` makes in each metric, from the same case on
-/// coarser grids (about twice the spacing at several offsets, and about sqrt(2) times). A line
-/// through the values over the spacing gives the limit of spacing zero; the error is the distance
-/// to it, or what the line falls by over the own spacing if that is more, together with twice the
-/// scatter about the line (root of the sum of squares), which is taken to grow with the spacing.
+/// coarser grids: four of about twice the spacing, on which the edges of openings lie differently
+/// between the nodes, and one of about sqrt(2) times. Each tells the own error if errors go with
+/// the spacing: (own - value) own_spacing / (spacing - own_spacing). The bound is the largest of
+/// these from grids with the edges where the own grid has them and of the mean of the coarse ones,
+/// and twice the standard deviation of those, brought down to the own spacing (root of the sum of
+/// squares). Where the own grid has no value (`own_counts` false) or too few grids are that coarse,
+/// it is what a line through all values falls by over the own spacing, together with twice the
+/// scatter about it. The error of the widest CD is at least the least of the CDs at given heights:
+/// a largest value clings to the edge of the mask on all grids.
 /// Fills Metric::grid_error (same unit) where
 /// at least four grids, the own one included if `own_counts`, have the value under the same
 /// definition.

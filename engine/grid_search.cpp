@@ -22,6 +22,7 @@ constexpr double grid_part = 0.9;     ///< of the error asked for that the grid 
 constexpr double sampling_part = 0.4; ///< ... that sampling is brought down to
 constexpr int most_cells_across_extruded = 200, most_cells_across_full = 64; ///< of the narrowest
 constexpr int fewest_companion_cells = 4;
+constexpr double away_cost = 0.03; ///< [cells] of edges elsewhere, for one cell more or less
 constexpr int most_ions = 1 << 22;
 
 double narrowest_opening(const Case& c) {
@@ -76,11 +77,48 @@ const GridRun* GridSearch::find(int cells, int ions, bool is_main) const {
     return found == runs_.end() ? nullptr : &*found;
 }
 
+/// Largest distance [cells] of where the edges of openings lie between the nodes of two grids.
+double GridSearch::edge_offset(int cells, int others) const {
+    const geometry::Domain& domain = asked_.domain;
+    double largest = 0;
+    const auto count = [&](double edge) {
+        const double more = (cells - others) * edge / domain.width_x(); // cells up to the edge
+        largest = std::max(largest, std::fabs(more - std::round(more)));
+    };
+    for (const geometry::Opening& opening : asked_.mask.openings)
+        for (const double side : {-0.5, 0.5}) {
+            count(opening.centre_x + side * opening.width_x - domain.x_min());
+            if (domain.symmetry == geometry::Symmetry::full &&
+                opening.shape != geometry::Opening::Shape::trench)
+                count(opening.centre_y + side * opening.width_y - domain.y_min());
+        }
+    return largest;
+}
+
+/// Of the grids with about `wanted` cells one on which the edges of openings lie as on that of
+/// `cells`.
+int GridSearch::alike(int cells, double wanted) const {
+    const int middle = static_cast<int>(std::lround(wanted));
+    const int reach = std::max(2, middle / 12);
+    int best = middle;
+    double least = std::numeric_limits<double>::infinity();
+    for (int each = middle - reach; each <= middle + reach; ++each) {
+        const double cost = edge_offset(cells, each) + away_cost * std::abs(each - middle);
+        if (cost < least - 1e-9) {
+            least = cost;
+            best = each;
+        }
+    }
+    return best;
+}
+
 std::vector<int> GridSearch::companion_cells(int cells) const {
     const int half = static_cast<int>(std::lround(0.5 * cells));
+    const int alike_half = alike(cells, 0.5 * cells);
+    const int first = std::clamp(half - 1, alike_half - 3, alike_half);
     std::vector<int> list;
-    for (const int wanted : {half - 1, half, half + 1, half + 2,
-                             static_cast<int>(std::lround(std::sqrt(0.5) * cells))}) {
+    for (const int wanted :
+         {first, first + 1, first + 2, first + 3, alike(cells, std::sqrt(0.5) * cells)}) {
         const int found = near(asked_, wanted);
         if (found >= fewest_companion_cells && found < cells &&
             std::find(list.begin(), list.end(), found) == list.end())
@@ -92,7 +130,10 @@ std::vector<int> GridSearch::companion_cells(int cells) const {
 std::vector<GridRun> GridSearch::companions_of(int cells) const {
     std::vector<GridRun> list;
     for (const int each : companion_cells(cells))
-        if (const GridRun* run = find(each, 0, false)) list.push_back(*run);
+        if (const GridRun* run = find(each, 0, false)) {
+            list.push_back(*run);
+            list.back().edge_offset = edge_offset(cells, each);
+        }
     return list;
 }
 

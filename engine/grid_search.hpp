@@ -59,6 +59,8 @@ private:
     Choice choose() const;
     int finer(int cells, double error) const;
     int finest_cells() const;
+    double edge_offset(int cells, int others) const;
+    int alike(int cells, double wanted) const;
     std::vector<int> companion_cells(int cells) const;
     const GridRun* find(int cells, int ions, bool is_main) const;
     std::vector<GridRun> companions_of(int cells) const;

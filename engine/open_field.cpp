@@ -2,6 +2,7 @@
 #include "engine/open_field.hpp"
 
 #include "engine/sources.hpp"
+#include "fluxes/surface_chemistry.hpp"
 #include "geometry/ray_caster.hpp"
 
 #include <algorithm>
@@ -41,23 +42,31 @@ OpenField::OpenField(const Case& the_case)
 }
 
 const fluxes::SurfaceResponse& OpenField::flat(int material, const std::string& plasma) const {
-    const auto known = known_.find({plasma, material});
-    if (known != known_.end()) return known->second;
+    const auto known = known_.find(plasma);
+    return (known == known_.end() ? responses_under(plasma) : known->second).at(material);
+}
+
+/// Every material at once: the tables of the ions are large, and serve them all.
+const std::vector<fluxes::SurfaceResponse>&
+OpenField::responses_under(const std::string& plasma) const {
     geometry::Domain domain;
     domain.spacing = 1;
     domain.cells_x = 4;
     const geometry::Surface surface = flat_surface(domain);
     const geometry::RayCaster caster(domain, surface, 2.0);
-    const fluxes::MaterialsInReach reach{{0, 1}, {material}};
+    const fluxes::Sources sources = sources_of(case_, case_.plasmas.at(plasma));
     fluxes::Sampling sampling;
     sampling.ions_per_species = 0; // nothing to reflect onto
     fluxes::SurfaceStep before;    // another material under the same ions
-    before.ion_tables = tables_[plasma];
-    const auto solved =
-        fluxes::solve_surface(domain, surface, caster, reach, case_.mechanism, case_.reflection,
-                              sources_of(case_, case_.plasmas.at(plasma)), sampling, &before);
-    tables_[plasma] = solved.ion_tables;
-    return known_.emplace(std::pair(plasma, material), solved.response[0]).first->second;
+    std::vector<fluxes::SurfaceResponse> responses;
+    for (int material = 0; material < int(case_.mechanism.surfaces.size()); ++material) {
+        const fluxes::MaterialsInReach reach{{0, 1}, {material}};
+        const auto solved = fluxes::solve_surface(domain, surface, caster, reach, case_.mechanism,
+                                                  case_.reflection, sources, sampling, &before);
+        before.ion_tables = solved.ion_tables;
+        responses.push_back(solved.response[0]);
+    }
+    return known_.emplace(plasma, std::move(responses)).first->second;
 }
 
 double OpenField::time_to(double z, const std::string& plasma) const {

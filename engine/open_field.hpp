@@ -5,9 +5,7 @@
 #include "fluxes/surface_step.hpp"
 
 #include <map>
-#include <memory>
 #include <string>
-#include <utility>
 #include <vector>
 
 namespace rille::engine {
@@ -36,13 +34,14 @@ public:
     }
 
 private:
+    const std::vector<fluxes::SurfaceResponse>& responses_under(const std::string& plasma) const;
+
     const Case& case_;
     geometry::Stack stack_;
     double height_ = 0;
     double grown_ = 0; ///< [nm] of film on top
     int grown_material_ = -1;
-    mutable std::map<std::pair<std::string, int>, fluxes::SurfaceResponse> known_;
-    mutable std::map<std::string, std::shared_ptr<const fluxes::IonTables>> tables_; ///< by plasma
+    mutable std::map<std::string, std::vector<fluxes::SurfaceResponse>> known_; ///< by plasma
 };
 
 } // namespace rille::engine

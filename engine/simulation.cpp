@@ -1,5 +1,6 @@
 // SPDX-License-Identifier: Apache-2.0
 #include "engine/simulation.hpp"
+#include "engine/error_drift.hpp"
 
 #include "engine/arrivals_change.hpp"
 #include "engine/sources.hpp"
@@ -351,6 +352,8 @@ void Simulation::accept(Trial&& trial, const fluxes::SurfaceStep& step) {
         for (std::size_t b = 0; b < step.rate_batch.size(); ++b)
             displacement_errors_[b][e] += (step.rate_batch[b][e] - mean) * dt;
     }
+    if (case_.domain.planar_contour())
+        drift_along_contour(surface_, step.rates, dt, displacement_errors_);
     carry(trial, {{geometry::Carry::per_area, trial.films.thickness},
                   {geometry::Carry::intensive, present_.neutral},
                   {geometry::Carry::intensive, displacement_errors_}});

@@ -6,6 +6,7 @@
 
 #include <algorithm>
 #include <cmath>
+#include <numeric>
 
 namespace rille::fluxes {
 namespace {
@@ -123,52 +124,80 @@ void add_piece(const Surface& surface, const Piece& piece, double window,
     }
 }
 
-/// The element and those that share a corner with it, twice over.
-std::vector<int> around(const Surface& surface, const std::vector<std::vector<int>>& at_vertex,
-                        int e) {
-    std::vector<int> found = {e};
-    std::size_t begin = 0;
-    for (int ringed = 0; ringed < 2; ++ringed) {
-        const std::size_t end = found.size();
-        for (std::size_t k = begin; k < end; ++k)
-            for (int corner : surface.corners[found[k]])
-                for (int f : at_vertex[corner])
-                    if (std::find(found.begin(), found.end(), f) == found.end() &&
-                        !corner_between(surface, e, f))
-                        found.push_back(f);
-        begin = end;
-    }
-    return found;
+/// Lists of unequal length, one behind the other: [first[i], first[i + 1]).
+struct Lists {
+    std::vector<int> first, value;
+};
+
+/// The elements at each vertex.
+Lists elements_at_vertices(const Surface& surface) {
+    Lists at;
+    at.first.assign(surface.vertices.size() + 1, 0);
+    const auto over_corners = [&](const auto& work) {
+        for (int e = 0; e < static_cast<int>(surface.size()); ++e)
+            for (int i = 0; i < 4; ++i)
+                if (i < 3 || surface.corners[e][3] != surface.corners[e][2])
+                    work(surface.corners[e][i], e);
+    };
+    over_corners([&](int vertex, int) { ++at.first[vertex + 1]; });
+    std::partial_sum(at.first.begin(), at.first.end(), at.first.begin());
+    at.value.resize(at.first.back());
+    std::vector<int> next = at.first;
+    over_corners([&](int vertex, int e) { at.value[next[vertex]++] = e; });
+    return at;
+}
+
+/// Calls work(e, the element and those that share a corner with it, twice over) for every element.
+template <class Work>
+void over_surroundings(const Surface& surface, const Lists& at_vertex, const Work& work) {
+    const int count = static_cast<int>(surface.size());
+    tbb::parallel_for(tbb::blocked_range<int>(0, count, 64), [&](const auto& range) {
+        std::vector<int> found;
+        for (int e = range.begin(); e != range.end(); ++e) {
+            found.assign(1, e);
+            std::size_t begin = 0;
+            for (int ringed = 0; ringed < 2; ++ringed) {
+                const std::size_t end = found.size();
+                for (std::size_t k = begin; k < end; ++k)
+                    for (const int corner : surface.corners[found[k]])
+                        for (int i = at_vertex.first[corner]; i < at_vertex.first[corner + 1]; ++i)
+                            if (const int f = at_vertex.value[i];
+                                std::find(found.begin(), found.end(), f) == found.end() &&
+                                !corner_between(surface, e, f))
+                                found.push_back(f);
+                begin = end;
+            }
+            work(e, found);
+        }
+    });
 }
 
 /// Weights a_f / max(S_e, S_f), S the area around: times a_e they are the same both ways, so that
 /// averages keep sums over the surface. The rest stays with the element.
-void add_rows(const Surface& surface, std::vector<std::vector<ArcAverage::Part>>& rows) {
-    std::vector<std::vector<int>> at_vertex(surface.vertices.size());
-    const int count = static_cast<int>(surface.size());
-    for (int e = 0; e < count; ++e)
-        for (int i = 0; i < 4; ++i)
-            if (i < 3 || surface.corners[e][3] != surface.corners[e][2])
-                at_vertex[surface.corners[e][i]].push_back(e);
-    std::vector<std::vector<int>> near(count);
-    std::vector<double> area(count, 0.0);
-    tbb::parallel_for(tbb::blocked_range<int>(0, count, 64), [&](const auto& range) {
-        for (int e = range.begin(); e != range.end(); ++e) {
-            near[e] = around(surface, at_vertex, e);
-            for (int f : near[e])
-                area[e] += surface.area[f];
-        }
+ArcAverage average_over_surroundings(const Surface& surface) {
+    const Lists at_vertex = elements_at_vertices(surface);
+    ArcAverage average;
+    average.first.assign(surface.size() + 1, 0);
+    std::vector<double> area(surface.size(), 0.0);
+    over_surroundings(surface, at_vertex, [&](int e, const std::vector<int>& found) {
+        average.first[e + 1] = static_cast<int>(found.size());
+        for (const int f : found)
+            area[e] += surface.area[f];
     });
-    for (int e = 0; e < count; ++e) {
-        rows[e].push_back({e, 1.0});
-        for (std::size_t i = 1; i < near[e].size(); ++i) {
-            const int f = near[e][i];
+    std::partial_sum(average.first.begin(), average.first.end(), average.first.begin());
+    average.parts.resize(average.first.back());
+    over_surroundings(surface, at_vertex, [&](int e, const std::vector<int>& found) {
+        ArcAverage::Part* parts = average.parts.data() + average.first[e];
+        parts[0] = {e, 1.0};
+        for (std::size_t i = 1; i < found.size(); ++i) {
+            const int f = found[i];
             const double widest = std::max(area[e], area[f]);
             const double weight = widest > 0 ? surface.area[f] / widest : 0.0;
-            rows[e].push_back({f, weight});
-            rows[e][0].weight -= weight;
+            parts[i] = {f, weight};
+            parts[0].weight -= weight;
         }
-    }
+    });
+    return average;
 }
 
 /// How much of an average is left between places whose normals differ by an angle of this cosine:
@@ -243,16 +272,12 @@ void weigh_by_area(const Surface& surface, std::vector<std::vector<ArcAverage::P
 } // namespace
 
 ArcAverage arc_average(const Domain& domain, const Surface& surface) {
-    const int count = static_cast<int>(surface.size());
-    std::vector<std::vector<ArcAverage::Part>> rows(count);
-    if (domain.planar_contour()) {
-        const double angle = domain.revolved() ? 1.5 * corner_angle : corner_angle;
-        for (const Piece& piece : smooth_pieces(surface, angle))
-            add_piece(surface, piece, window_cells * domain.spacing, rows);
-        if (domain.revolved()) weigh_by_area(surface, rows);
-    } else {
-        add_rows(surface, rows);
-    }
+    if (!domain.planar_contour()) return average_over_surroundings(surface);
+    std::vector<std::vector<ArcAverage::Part>> rows(surface.size());
+    const double angle = domain.revolved() ? 1.5 * corner_angle : corner_angle;
+    for (const Piece& piece : smooth_pieces(surface, angle))
+        add_piece(surface, piece, window_cells * domain.spacing, rows);
+    if (domain.revolved()) weigh_by_area(surface, rows);
     ArcAverage average;
     average.first.push_back(0);
     for (const auto& row : rows) {

@@ -1,6 +1,5 @@
 // SPDX-License-Identifier: Apache-2.0
-#include "fluxes/arc_average.hpp"
-#include "fluxes/direct_ions.hpp"
+#include "fluxes/ion_gather.hpp"
 #include "fluxes/open_sky.hpp"
 
 #include <tbb/blocked_range.h>
@@ -9,6 +8,7 @@
 #include <algorithm>
 #include <array>
 #include <cmath>
+#include <numeric>
 
 namespace rille::fluxes {
 namespace {
@@ -16,23 +16,20 @@ namespace {
 /// Two-point Gauss rule along a segment.
 constexpr std::array<double, 2> gauss = {0.21132486540518712, 0.7886751345948129};
 
-class ExtrudedGather {
+class ExtrudedGather : public IonGather {
 public:
     ExtrudedGather(const geometry::Domain& domain, const geometry::Surface& surface,
-                   const IonTables& tables)
-        : surface_(surface), tables_(tables), sky_(domain, surface),
-          average_(arc_average(domain, surface)), normal_(averaged_normals(surface, average_)),
-          seen_(surface.size()) {}
-
-    DirectIons::Gathered run() {
+                   const IonTables& tables, const WantedSums& wanted)
+        : IonGather(domain, surface, wanted), surface_(surface), tables_(tables), wanted_(wanted),
+          sky_(domain, surface), seen_(surface.size()) {
         const std::size_t count = surface_.size(), ions = tables_.ions().size();
-        gathered_.flux.assign(ions, std::vector<double>(count, 0.0));
+        flux_.assign(ions, std::vector<double>(count, 0.0));
         over_elements([&](int e) {
             for (double part : gauss)
                 for (const Visible& v : sky_.visible(e, part))
                     seen_[e].push_back(v);
             for (std::size_t s = 0; s < ions; ++s)
-                gathered_.flux[s][e] =
+                flux_[s][e] =
                     tables_.ions()[s].flux * sky_.flux(tables_.in_plane(static_cast<int>(s)), e);
         });
         for (std::size_t s = 0; s < ions; ++s) {
@@ -40,14 +37,28 @@ public:
             flux_row_.push_back(averaged_rows(tables_.flux_tally(static_cast<int>(s)), places_[s]));
             std::vector<double> own(count);
             over_elements([&](int e) {
-                own[e] = on_row(tables_.angles(), &flux_row_[s][e * tables_.angles().size()],
-                                own_angle(e));
+                own[e] = on_row(&flux_row_[s][e * tables_.angles().size()], own_angle(e));
             });
             own_flux_.push_back(std::move(own));
         }
         for (std::size_t m = 0; m < tables_.tallies().size(); ++m)
             tabulate(static_cast<int>(m));
-        return std::move(gathered_);
+        over_elements([&](int e) { sum_own(e); });
+    }
+
+    double flux(int ion, int e) const override { return flux_[ion][e]; }
+    void visit_rows(const DirectIons::UseRows& use) const override {
+        const std::size_t angles = tables_.angles().size(), sums = wanted_.members.size();
+        std::vector<int> place(sums);
+        std::iota(place.begin(), place.end(), 0);
+        over_elements([&](int e) {
+            std::vector<double> rows(sums * angles, 0.0);
+            for (std::size_t s = 0; s < sums; ++s)
+                for (const int m : wanted_.members[s])
+                    for (std::size_t k = 0; k < angles; ++k)
+                        rows[s * angles + k] += row_[m][e * angles + k];
+            use(e, {rows.data(), place.data(), angles});
+        });
     }
 
 private:
@@ -92,9 +103,9 @@ private:
         std::vector<float> rows(count * angles);
         over_elements([&](int e) {
             std::vector<double> row(angles, 0.0);
-            for (int i = average_.first[e]; i < average_.first[e + 1]; ++i) {
-                const float* part = &raw[average_.parts[i].element * angles];
-                const double weight = average_.parts[i].weight;
+            for (int i = average_->first[e]; i < average_->first[e + 1]; ++i) {
+                const float* part = &raw[average_->parts[i].element * angles];
+                const double weight = average_->parts[i].weight;
                 for (std::size_t k = 0; k < angles; ++k)
                     row[k] += weight * part[k];
             }
@@ -106,21 +117,28 @@ private:
 
     /// Rows of one tally, brought to the flux that the elements of the average really receive.
     void tabulate(int m) {
-        const std::size_t count = surface_.size(), angles = tables_.angles().size();
+        const std::size_t angles = tables_.angles().size();
         const int ion = tables_.tallies()[m].ion;
-        gathered_.row.push_back(averaged_rows(m, places_[ion]));
-        gathered_.row_of.push_back(m);
-        gathered_.factor.push_back(1.0);
-        gathered_.tally.emplace_back(count, 0.0);
+        row_.push_back(averaged_rows(m, places_[ion]));
         over_elements([&](int e) {
-            float* row = &gathered_.row[m][e * angles];
+            float* row = &row_[m][e * angles];
             const float* flux = &flux_row_[ion][e * angles];
             const double own = own_flux_[ion][e];
-            const double missing = average_.of(gathered_.flux[ion], e) - own;
+            const double missing = average_->of(flux_[ion], e) - own;
             for (std::size_t k = 0; k < angles; ++k)
                 row[k] = static_cast<float>(row[k] * correction(missing, own, flux[k]));
-            gathered_.tally[m][e] = on_row(tables_.angles(), row, own_angle(e));
         });
+    }
+
+    double on_row(const float* row, double angle) const {
+        const AngleNode at = angle_node(tables_.angles(), angle);
+        return row[at.node] + at.part * (double(row[at.node + 1]) - row[at.node]);
+    }
+    void sum_own(int e) {
+        const std::vector<int>& sums = wanted_.of(e);
+        for (std::size_t i = 0; i < sums.size(); ++i)
+            for (const int m : wanted_.members[sums[i]])
+                own_[first_[e] + i] += on_row(&row_[m][e * tables_.angles().size()], own_angle(e));
     }
 
     /// Brings in the flux that point samples and the averaged normal miss: as an amount where the
@@ -133,21 +151,22 @@ private:
 
     const geometry::Surface& surface_;
     const IonTables& tables_;
+    const WantedSums& wanted_;
     OpenSky sky_;
-    ArcAverage average_;
-    std::vector<geometry::Vec3> normal_;
     std::vector<std::vector<Visible>> seen_;
     std::vector<std::vector<std::vector<Seen>>> places_; ///< [ion][e]
-    std::vector<std::vector<float>> flux_row_;           ///< [ion], like Gathered::row
+    std::vector<std::vector<double>> flux_;              ///< [ion][e]
+    std::vector<std::vector<float>> row_;                ///< [tally][e * angles + k] [nm^-2 s^-1]
+    std::vector<std::vector<float>> flux_row_;           ///< [ion], likewise
     std::vector<std::vector<double>> own_flux_; ///< [ion][e]: the row at the element's own normal
-    DirectIons::Gathered gathered_;
 };
 
 } // namespace
 
-DirectIons::Gathered gather_extruded(const geometry::Domain& domain,
-                                     const geometry::Surface& surface, const IonTables& tables) {
-    return ExtrudedGather(domain, surface, tables).run();
+std::unique_ptr<IonGather> gather_extruded(const geometry::Domain& domain,
+                                           const geometry::Surface& surface,
+                                           const IonTables& tables, const WantedSums& wanted) {
+    return std::make_unique<ExtrudedGather>(domain, surface, tables, wanted);
 }
 
 } // namespace rille::fluxes

@@ -1,9 +1,10 @@
 // SPDX-License-Identifier: Apache-2.0
-#include "fluxes/arc_average.hpp"
-#include "fluxes/direct_ions.hpp"
-#include "fluxes/exchange.hpp"
-#include "fluxes/launch.hpp"
+#include "fluxes/exchange_operator.hpp"
+#include "fluxes/ion_gather.hpp"
+#include "fluxes/row_kernels.hpp"
 #include "fluxes/sampling.hpp"
+#include "fluxes/sky_view.hpp"
+#include "fluxes/spatial_order.hpp"
 
 #include <tbb/blocked_range.h>
 #include <tbb/parallel_for.h>
@@ -11,390 +12,315 @@
 #include <algorithm>
 #include <array>
 #include <cmath>
+#include <map>
 
 namespace rille::fluxes {
 namespace {
 
-using geometry::Hit;
+using Nodes = RowKernels::Nodes;
+using Selection = RowKernels::Selection;
 
 constexpr std::uint64_t stream = 0x64697265637400ULL; ///< keeps keys apart from other samplings
+constexpr int chunk_elements = 512;                   ///< whose rows are held at once
 
-/// An angle law times the received flux is needed at (directions x angles) per element: linear in a
-/// table over the cosine, whose error (1e-5) is far below the sampling error.
-class AngleTable {
-public:
-    explicit AngleTable(const AngleLaw& law) {
-        for (int i = 0; i <= cells; ++i)
-            value_.push_back(angle_factor(law, double(i) / cells));
-        value_.push_back(value_.back());
-    }
-    double operator()(double cosine) const {
-        const double x = std::min(cosine, 1.0) * cells;
-        const int i = static_cast<int>(x);
-        return value_[i] + (x - i) * (value_[i + 1] - value_[i]);
-    }
+/// Some materials of a run; two that share a bit are taken together.
+using Materials = std::uint64_t;
+Materials bit_of(int material) {
+    return Materials(1) << (material & 63);
+}
 
-    bool operator==(const AngleTable& other) const { return value_ == other.value_; }
+/// The ions of one group onto one element: the points behind the rays of one batch.
+ScrambledPoints points_of(const DirectIons::Options& options, int e, int group, int batch) {
+    return ScrambledPoints(stream_key(options.seed, stream, options.refresh, e, group, batch));
+}
+/// Spread over the element, so that the flux is its mean and not that of its centre.
+Launch launch_of(const Launcher& launcher, const ScrambledPoints& points, int k) {
+    const auto place = points.pair(static_cast<std::uint32_t>(k), 2);
+    return launcher(place[0], place[1]);
+}
 
-private:
-    static constexpr int cells = 2048;
-    std::vector<double> value_;
-};
-
-/// An energy law over the energies of one distribution: linear in a table where they are spread.
-class EnergyTable {
-public:
-    EnergyTable(const EnergyLaw& law, const IonDistribution& distribution) : law_(law) {
-        low_ = high_ = distribution.sample({0.5, 0.5, 0.5, 0.5}).energy_ev;
-        const ScrambledPoints points(stream);
-        for (std::uint32_t i = 0; i < 256; ++i) {
-            const double energy = distribution.sample(points.four(i)).energy_ev;
-            low_ = std::min(low_, energy);
-            high_ = std::max(high_, energy);
-        }
-        for (int i = 0; high_ > low_ && i <= cells; ++i)
-            value_.push_back(energy_yield(law, low_ + (high_ - low_) * i / cells));
-    }
-    double operator()(double energy) const {
-        if (value_.empty() || energy < low_ || energy >= high_) return energy_yield(law_, energy);
-        const double x = (energy - low_) / (high_ - low_) * cells;
-        const int i = std::min(static_cast<int>(x), cells - 1);
-        return value_[i] + (x - i) * (value_[i + 1] - value_[i]);
-    }
-
-private:
-    static constexpr int cells = 1024;
-    EnergyLaw law_;
-    double low_, high_;
-    std::vector<double> value_;
-};
-
-/// Ions that arrive: where they come from and what they weigh.
-struct Arrival {
-    double up = 0;     ///< component of the reverse direction along +z
-    double along = 0;  ///< and along the horizontal part of the element's normal; revolved: along x
-    double weight = 0; ///< share of the flux / up
-    double energy = 0;
-    int batch = 0;
-};
-
-/// Species that arrive alike (the mass of an ion does not matter in a collisionless sheath) share
-/// directions and what these see.
-struct Group {
-    IonDistribution distribution;
-    std::vector<double> content;
-    std::vector<int> ions;
-};
-
-/// A yield apart from its scale, for one group: tallies are multiples of kernels.
-struct Kernel {
-    int group;
-    std::vector<double> content;
-    EnergyTable energy;
-    int angle; ///< index of the table of the angle law
-};
-
-class FullGather {
+class FullGather : public IonGather {
 public:
     FullGather(const geometry::Domain& domain, const geometry::Surface& surface,
-               const geometry::RayCaster& caster, const IonTables& tables,
+               const geometry::RayCaster& caster, const IonTables& tables, const WantedSums& wanted,
                const DirectIons::Options& options)
-        : domain_(domain), surface_(surface), caster_(caster), tables_(tables), options_(options),
-          average_(arc_average(domain, surface)), normal_(averaged_normals(surface, average_)),
-          per_batch_((std::max(options.directions, 1) + batches - 1) / batches) {
-        for (double a : tables.angles()) {
-            cosine_.push_back(std::cos(a));
-            sine_.push_back(std::sin(a));
-        }
-        for (std::size_t s = 0; s < tables.ions().size(); ++s)
-            join_group(static_cast<int>(s));
-        for (const Tally& tally : tables.tallies())
-            join_kernel(tally);
+        : IonGather(domain, surface, wanted), domain_(domain), surface_(surface), tables_(tables),
+          wanted_(wanted), options_(options), kernels_(tables, wanted.members),
+          per_batch_((std::max(options.directions, 1) + batches - 1) / batches),
+          words_((per_batch_ * batches + 63) / 64) {
+        const std::size_t count = surface.size(), groups = kernels_.groups();
+        arrives_.assign(count * groups * words_, 0);
+        flux_.assign(groups, std::vector<double>(count));
+        gather_own(SkyView(domain, surface, caster));
     }
 
-    /// Group after group, so that unaveraged rows are held of one group only.
-    DirectIons::Gathered run() {
-        const std::size_t count = surface_.size(), angles = cosine_.size();
-        gathered_.rays_per_batch = per_batch_;
-        gathered_.group_of = group_of_;
-        gathered_.seen.resize(groups_.size());
-        gathered_.row.resize(kernels_.size());
-        gathered_.tally.assign(tables_.tallies().size(), std::vector<double>(count));
-        gathered_.batch.assign(tables_.tallies().size(), std::vector<double>(count * batches));
-        std::vector<std::vector<double>> group_flux(groups_.size(), std::vector<double>(count));
-        raw_row_.resize(kernels_.size());
-        raw_batch_.resize(kernels_.size());
-        for (int g = 0; g < static_cast<int>(groups_.size()); ++g) {
-            gathered_.seen[g].resize(count * batches * per_batch_);
-            for_kernels(g, [&](std::size_t n) {
-                raw_row_[n].assign(count * angles, 0);
-                raw_batch_[n].assign(count * batches, 0);
-                gathered_.row[n].resize(count * angles);
-            });
-            over_elements([&](int e) { tabulate(g, e, trace(g, e, group_flux[g][e])); });
-            over_elements([&](int e) { average(g, e); });
-            for_kernels(g, [&](std::size_t n) {
-                std::vector<float>().swap(raw_row_[n]);
-                std::vector<double>().swap(raw_batch_[n]);
-            });
-        }
-        for (std::size_t s = 0; s < group_of_.size(); ++s) {
-            gathered_.flux.push_back(group_flux[group_of_[s]]);
-            for (double& flux : gathered_.flux.back())
-                flux *= tables_.ions()[s].flux;
-        }
-        return std::move(gathered_);
+    double flux(int ion, int e) const override {
+        return tables_.ions()[ion].flux * flux_[kernels_.group_of(ion)][e];
     }
+    int groups() const override { return kernels_.groups(); }
+    int group_of(int ion) const override { return kernels_.group_of(ion); }
+    int rays_per_batch() const override { return per_batch_; }
+    bool arrives(int group, int e, int batch, int k) const override {
+        const int ray = batch * per_batch_ + k;
+        return words(group, e)[ray / 64] >> (ray % 64) & 1;
+    }
+    Launch place(const Launcher& launcher, int group, int e, int batch, int k) const override {
+        return launch_of(launcher, points_of(options_, e, group, batch), k);
+    }
+    IonSample ion(int group, int e, int batch, int k) const override {
+        const auto index = static_cast<std::uint32_t>(k);
+        return kernels_.distribution(group).sample(
+            points_of(options_, e, group, batch).four(index));
+    }
+    void visit_rows(const DirectIons::UseRows&) const override;
 
 private:
+    /// What is held of one element until the elements around it are averaged over: its rows about
+    /// their normals and its batches, of the sums that are wanted there.
+    struct Raw {
+        Nodes nodes;
+        Materials materials = 0;
+        const Selection* selection = nullptr;
+        std::size_t row = 0, batch = 0; ///< where they begin
+    };
+
     template <class Work>
     void over_elements(const Work& work) const {
-        tbb::parallel_for(tbb::blocked_range<int>(0, static_cast<int>(surface_.size()), 16),
+        tbb::parallel_for(tbb::blocked_range<int>(0, static_cast<int>(surface_.size()), 64),
                           [&](const tbb::blocked_range<int>& range) {
                               for (int e = range.begin(); e != range.end(); ++e)
                                   work(e);
                           });
     }
-
     template <class Work>
-    void for_kernels(int group, const Work& work) const {
-        for (std::size_t n = 0; n < kernels_.size(); ++n)
-            if (kernels_[n].group == group) work(n);
+    void over_parts(int e, const Work& work) const {
+        for (int i = average_->first[e]; i < average_->first[e + 1]; ++i)
+            work(average_->parts[i].element, average_->parts[i].weight);
     }
-
-    void join_group(int ion) {
-        const IonDistribution& distribution = tables_.ions()[ion].distribution;
-        std::vector<double> content;
-        distribution.append_content(content);
-        const auto same = std::find_if(groups_.begin(), groups_.end(),
-                                       [&](const Group& g) { return g.content == content; });
-        group_of_.push_back(static_cast<int>(same - groups_.begin()));
-        if (same == groups_.end()) groups_.push_back({distribution, std::move(content), {}});
-        groups_[group_of_.back()].ions.push_back(ion);
+    const std::uint64_t* words(int group, int e) const {
+        return arrives_.data() + (std::size_t(e) * kernels_.groups() + group) * words_;
     }
-
-    void join_kernel(const Tally& tally) {
-        const int group = group_of_[tally.ion];
-        std::vector<double> content;
-        append_content(tally.yield, content);
-        const auto same = std::find_if(kernels_.begin(), kernels_.end(), [&](const Kernel& k) {
-            return k.group == group && k.content == content;
-        });
-        gathered_.row_of.push_back(static_cast<int>(same - kernels_.begin()));
-        gathered_.factor.push_back(tables_.ions()[tally.ion].flux * tally.yield.scale);
-        if (same != kernels_.end()) return;
-        const AngleTable table(tally.yield.angle);
-        const auto known = std::find(angle_factor_.begin(), angle_factor_.end(), table);
-        const int angle = static_cast<int>(known - angle_factor_.begin());
-        if (known == angle_factor_.end()) angle_factor_.push_back(table);
-        kernels_.push_back({group, std::move(content),
-                            EnergyTable(tally.yield.energy, groups_[group].distribution), angle});
-    }
-
-    /// One ray per direction; adds up the flux, in units of the open flux.
-    std::vector<Arrival> trace(int group, int e, double& flux) {
-        DirectIons::SeenRay* seen_rays =
-            gathered_.seen[group].data() + std::size_t(e) * batches * per_batch_;
-        const Vec3 mean = normal_[e];
-        const double flat = domain_.revolved() ? 0 : std::hypot(mean.x, mean.y);
-        const double hx = flat > 1e-9 ? mean.x / flat : 1.0, hy = flat > 1e-9 ? mean.y / flat : 0.0;
-        const double share = 1.0 / (per_batch_ * batches);
-        std::vector<Arrival> arrivals;
-        arrivals.reserve(std::size_t(per_batch_) * batches);
-        for (int b = 0; b < batches; ++b) {
-            for (int k = 0; k < per_batch_; ++k) {
-                const auto [at, ion] =
-                    sky_ray(surface_, groups_[group].distribution, options_, e, group, b, k);
-                const Vec3 from = -ion.direction;
-                const double facing = from.dot(at.normal);
-                const bool seen = facing > 0 ? caster_.opens(at.point, from, e)
-                                             : reached_from_behind(e, at.point, from);
-                if (!seen) continue;
-                if (facing > 0) {
-                    flux += share * facing / from.z;
-                    seen_rays[std::size_t(b) * per_batch_ + k] = {
-                        static_cast<float>(facing / from.z), static_cast<float>(mean.dot(from))};
-                }
-                arrivals.push_back(
-                    {from.z, from.x * hx + from.y * hy, share / from.z, ion.energy_ev, b});
-            }
-        }
-        return arrivals;
-    }
-
-    /// A direction behind the element's own plane matters only for turned normals, next to a convex
-    /// edge: an ion from there must get within a cell and a half of the element.
-    bool reached_from_behind(int e, const Vec3& at, const Vec3& from) const {
-        if (domain_.revolved()) return turns_towards(e, from) && reached_in_round_cell(at, from);
-        const double path = (caster_.z_open() - at.z) / from.z;
-        Vec3 origin = at + from * path, direction = -from;
-        fold(origin.x, direction.x, domain_.x_min(), domain_.width_x());
-        fold(origin.y, direction.y, domain_.y_min(), domain_.width_y());
-        const Hit hit = caster_.trace(origin, direction, -1);
-        return hit.kind == Hit::Kind::surface && hit.distance > path - 1.5 * domain_.spacing;
-    }
-    /// Whether the contour turns towards a direction within four cells of an element, so that an
-    /// ion from there may get as near.
-    bool turns_towards(int e, const Vec3& from) const {
-        for (const bool back : {false, true}) {
-            double way = 0;
-            for (int f = e; f >= 0 && way < 4 * domain_.spacing;
-                 f = back ? surface_.previous[f] : surface_.next[f]) {
-                if (surface_.normal[f].dot(from) > 0) return true;
-                way += surface_.length(f);
-            }
-        }
-        return false;
-    }
-    /// reached_from_behind where the side is a cylinder: back along the way, with its reflections
-    /// there, to where it comes from the open.
-    bool reached_in_round_cell(const Vec3& at, const Vec3& from) const {
-        constexpr int most_reflections = 16; // more: it comes along the horizon
-        const double path = (caster_.z_open() - at.z) / from.z, radius = domain_.width_x();
-        Vec3 start = at, back = from;
-        double left = path;
-        for (int n = 0; n <= most_reflections; ++n) {
-            const double square = back.x * back.x + back.y * back.y;
-            const double along = start.x * back.x + start.y * back.y;
-            const double within = radius * radius - start.x * start.x - start.y * start.y;
-            const double leaves =
-                square > 0
-                    ? (std::sqrt(along * along + square * std::max(0.0, within)) - along) / square
-                    : left;
-            start += back * std::min(left, leaves);
-            if (leaves >= left) {
-                const Hit hit = caster_.trace(start, -back, -1);
-                return hit.kind == Hit::Kind::surface &&
-                       hit.distance > path - 1.5 * domain_.spacing;
-            }
-            left -= leaves;
-            const Vec3 outwards = Vec3(start.x, start.y, 0).normalized();
-            back -= outwards * (2 * outwards.dot(back));
-        }
-        return false;
-    }
-    void fold(double& at, double& direction, double low, double width) const {
-        const double periods = domain_.sides == geometry::Sides::mirror ? 2 * width : width;
-        at -= low + periods * std::floor((at - low) / periods);
-        if (at > width) {
-            at = 2 * width - at;
-            direction = -direction;
-        }
-        at += low;
-    }
-
     double own_angle(int e) const {
         const Vec3& n = normal_[e];
         return domain_.revolved() ? std::atan2(n.x, n.z) : std::acos(std::clamp(n.z, -1.0, 1.0));
     }
-
-    /// Raw rows of the kernels of a group, and what the batches say at the element's own normal.
-    void tabulate(int group, int e, const std::vector<Arrival>& arrivals) {
-        const std::size_t angles = cosine_.size(), laws = angle_factor_.size();
-        const double own_c = std::cos(own_angle(e)), own_s = std::sin(own_angle(e));
-        std::vector<double> received(laws * angles), own(laws);
-        std::vector<double> rows(kernels_.size() * angles, 0.0);
-        for (const Arrival& a : arrivals) {
-            const double own_cosine = std::max(0.0, own_c * a.up + own_s * a.along);
-            for (std::size_t l = 0; l < laws; ++l)
-                own[l] = own_cosine * angle_factor_[l](own_cosine);
-            for (std::size_t k = 0; k < angles; ++k) {
-                const double c = cosine_[k] * a.up + sine_[k] * a.along;
-                for (std::size_t l = 0; l < laws; ++l)
-                    received[l * angles + k] = c > 0 ? c * angle_factor_[l](c) : 0.0;
-            }
-            for (std::size_t n = 0; n < kernels_.size(); ++n) {
-                if (kernels_[n].group != group) continue;
-                const double strength = a.weight * kernels_[n].energy(a.energy);
-                raw_batch_[n][std::size_t(e) * batches + a.batch] +=
-                    batches * strength * own[kernels_[n].angle];
-                const double* from = received.data() + kernels_[n].angle * angles;
-                double* row = rows.data() + n * angles;
-                for (std::size_t k = 0; k < angles; ++k)
-                    row[k] += strength * from[k];
-            }
-        }
-        for (std::size_t n = 0; n < kernels_.size(); ++n)
-            if (kernels_[n].group == group)
-                std::copy_n(rows.data() + n * angles, angles,
-                            raw_row_[n].data() + std::size_t(e) * angles);
+    /// Unit vector along the horizontal part of an element's normal; revolved: along x.
+    std::array<double, 2> outwards(int e) const {
+        const Vec3& n = normal_[e];
+        const double flat = domain_.revolved() ? 0 : std::hypot(n.x, n.y);
+        return flat > 1e-9 ? std::array{n.x / flat, n.y / flat} : std::array{1.0, 0.0};
     }
-
-    /// Averages over the surroundings: a wall takes so little of the beam that the noise of one
-    /// element's directions would roughen it.
-    void average(int group, int e) {
-        const std::size_t angles = cosine_.size();
-        std::vector<double> row(angles);
-        std::array<double, batches> batch;
-        for_kernels(group, [&](std::size_t n) {
-            std::fill(row.begin(), row.end(), 0.0);
-            batch.fill(0.0);
-            for (int i = average_.first[e]; i < average_.first[e + 1]; ++i) {
-                const auto [f, weight] = average_.parts[i];
-                const float* from = raw_row_[n].data() + std::size_t(f) * angles;
-                for (std::size_t k = 0; k < angles; ++k)
-                    row[k] += weight * from[k];
-                for (int b = 0; b < batches; ++b)
-                    batch[b] += weight * raw_batch_[n][std::size_t(f) * batches + b];
-            }
-            float* to = gathered_.row[n].data() + std::size_t(e) * angles;
-            for (std::size_t k = 0; k < angles; ++k)
-                to[k] = static_cast<float>(row[k]);
-            const double own = on_row(tables_.angles(), to, own_angle(e));
-            // Batches spread about the same mean.
-            double mean = 0;
-            for (const double value : batch)
-                mean += value / batches;
-            for (double& value : batch)
-                value = mean > 0 ? value * own / mean : own;
-            add_tallies(static_cast<int>(n), e, own, batch);
-        });
+    Arrival arrival(const IonSample& ion, const std::array<double, 2>& out, int batch) const {
+        const Vec3 from = -ion.direction;
+        const double share = 1.0 / (per_batch_ * batches);
+        return {from.z, from.x * out[0] + from.y * out[1], share / from.z, ion.energy_ev, batch};
     }
-
-    /// Files what a kernel gives at an element's own normal under the tallies that it stands for.
-    void add_tallies(int kernel, int e, double own, const std::array<double, batches>& batch) {
-        for (std::size_t m = 0; m < gathered_.row_of.size(); ++m) {
-            if (gathered_.row_of[m] != kernel) continue;
-            gathered_.tally[m][e] = gathered_.factor[m] * own;
-            for (int b = 0; b < batches; ++b)
-                gathered_.batch[m][std::size_t(e) * batches + b] = gathered_.factor[m] * batch[b];
-        }
-    }
+    Selection select(Materials) const;
+    std::vector<Raw> plan(std::map<Materials, Selection>&) const;
+    void gather_own(const SkyView&);
+    void trace(const SkyView&, int e, const Raw&, std::vector<double>& rows,
+               std::vector<double>& batch);
+    void average(int e, const std::vector<Raw>&, const std::vector<float>& rows,
+                 const std::vector<float>& batch);
+    void add_again(int e, const Selection&, std::vector<double>& rows) const;
 
     const geometry::Domain& domain_;
     const geometry::Surface& surface_;
-    const geometry::RayCaster& caster_;
     const IonTables& tables_;
-    const DirectIons::Options& options_;
-    ArcAverage average_;
-    std::vector<Vec3> normal_;
-    int per_batch_;
-    std::vector<Group> groups_;
-    std::vector<int> group_of_; ///< of each ion
-    std::vector<Kernel> kernels_;
-    std::vector<AngleTable> angle_factor_;
-    std::vector<double> cosine_, sine_;
-    std::vector<std::vector<float>> raw_row_;    ///< [kernel][e * angles + k]
-    std::vector<std::vector<double>> raw_batch_; ///< [kernel][e * 8 + b]
-    DirectIons::Gathered gathered_;
+    const WantedSums& wanted_;
+    DirectIons::Options options_;
+    RowKernels kernels_;
+    int per_batch_, words_;
+    std::vector<std::uint64_t> arrives_;    ///< [e][group]: a bit of each ray
+    std::vector<std::vector<double>> flux_; ///< [group][e], in units of the open flux
 };
+
+Selection FullGather::select(Materials materials) const {
+    std::vector<int> sums;
+    for (std::size_t m = 0; m < wanted_.of_material.size(); ++m)
+        if (materials & bit_of(static_cast<int>(m)))
+            sums.insert(sums.end(), wanted_.of_material[m].begin(), wanted_.of_material[m].end());
+    std::sort(sums.begin(), sums.end());
+    sums.erase(std::unique(sums.begin(), sums.end()), sums.end());
+    return kernels_.select(sums);
+}
+
+/// What the averages at the elements' own normals need of each element.
+std::vector<FullGather::Raw> FullGather::plan(std::map<Materials, Selection>& selections) const {
+    std::vector<Raw> raw(surface_.size());
+    for (int e = 0; e < static_cast<int>(raw.size()); ++e) {
+        const int node = angle_node(tables_.angles(), own_angle(e)).node;
+        over_parts(e, [&](int f, double) {
+            Nodes& nodes = raw[f].nodes;
+            nodes = nodes.size() == 0
+                        ? Nodes{node, node + 2}
+                        : Nodes{std::min(nodes.from, node), std::max(nodes.to, node + 2)};
+            raw[f].materials |= bit_of(wanted_.reach->outermost(e));
+        });
+    }
+    std::size_t row = 0, batch = 0;
+    for (Raw& one : raw) {
+        const auto known = selections.find(one.materials);
+        one.selection =
+            known != selections.end()
+                ? &known->second
+                : &selections.emplace(one.materials, select(one.materials)).first->second;
+        one.row = row;
+        one.batch = batch;
+        row += one.selection->sums.size() * one.nodes.size();
+        batch += one.selection->sums.size() * batches;
+    }
+    return raw;
+}
+
+/// Averages over the surroundings: a wall takes so little of the beam that the noise of one
+/// element's directions would roughen it.
+void FullGather::gather_own(const SkyView& view) {
+    std::map<Materials, Selection> selections;
+    const std::vector<Raw> raw = plan(selections);
+    if (raw.empty()) return;
+    const auto held = [](const Raw& one) { return one.selection->sums.size(); };
+    std::vector<float> rows(raw.back().row + held(raw.back()) * raw.back().nodes.size());
+    std::vector<float> batch(raw.back().batch + held(raw.back()) * batches);
+    over_elements([&](int e) {
+        std::vector<double> own_rows(held(raw[e]) * raw[e].nodes.size());
+        std::vector<double> own_batch(held(raw[e]) * batches);
+        trace(view, e, raw[e], own_rows, own_batch);
+        std::copy(own_rows.begin(), own_rows.end(), rows.begin() + raw[e].row);
+        std::copy(own_batch.begin(), own_batch.end(), batch.begin() + raw[e].batch);
+    });
+    batch_.resize(own_.size() * batches);
+    over_elements([&](int e) { average(e, raw, rows, batch); });
+}
+
+/// One ray per direction; adds up the flux, in units of the open flux.
+void FullGather::trace(const SkyView& view, int e, const Raw& raw, std::vector<double>& rows,
+                       std::vector<double>& batch) {
+    const double cosine = std::cos(own_angle(e)), sine = std::sin(own_angle(e));
+    const auto out = outwards(e);
+    const Launcher launcher(surface_, e);
+    for (int g = 0; g < kernels_.groups(); ++g) {
+        std::uint64_t* seen = arrives_.data() + (words(g, e) - arrives_.data());
+        for (int b = 0; b < batches; ++b) {
+            const ScrambledPoints points = points_of(options_, e, g, b);
+            for (int k = 0; k < per_batch_; ++k) {
+                const Launch at = launch_of(launcher, points, k);
+                const IonSample ion =
+                    kernels_.distribution(g).sample(points.four(static_cast<std::uint32_t>(k)));
+                const Vec3 from = -ion.direction;
+                if (!view.reaches(e, at, from)) continue;
+                const int ray = b * per_batch_ + k;
+                seen[ray / 64] |= std::uint64_t(1) << (ray % 64);
+                const Arrival a = arrival(ion, out, b);
+                flux_[g][e] += a.weight * std::max(0.0, from.dot(at.normal));
+                kernels_.add(*raw.selection, g, a, raw.nodes, rows);
+                kernels_.add_own(*raw.selection, g, a, cosine, sine, batch);
+            }
+        }
+    }
+}
+
+void FullGather::average(int e, const std::vector<Raw>& raw, const std::vector<float>& rows,
+                         const std::vector<float>& batch) {
+    const AngleNode at = angle_node(tables_.angles(), own_angle(e));
+    const std::vector<int>& sums = wanted_.of(e);
+    for (std::size_t i = 0; i < sums.size(); ++i) {
+        double own = 0;
+        std::array<double, batches> spread{};
+        over_parts(e, [&](int f, double weight) {
+            const int place = raw[f].selection->place[sums[i]];
+            const float* row = rows.data() + raw[f].row + std::size_t(place) * raw[f].nodes.size();
+            const double low = row[at.node - raw[f].nodes.from];
+            const double high = row[at.node - raw[f].nodes.from + 1];
+            own += weight * (low + at.part * (high - low));
+            const float* of = batch.data() + raw[f].batch + std::size_t(place) * batches;
+            for (int b = 0; b < batches; ++b)
+                spread[b] += weight * of[b];
+        });
+        own_[first_[e] + i] = own;
+        // Batches spread about the same mean.
+        double mean = 0;
+        for (const double value : spread)
+            mean += value / batches;
+        for (int b = 0; b < batches; ++b)
+            batch_[(std::size_t(first_[e]) + i) * batches + b] =
+                mean > 0 ? spread[b] * own / mean : own;
+    }
+}
+
+/// Rows over all angles from the rays that are known to arrive.
+void FullGather::add_again(int e, const Selection& selection, std::vector<double>& rows) const {
+    const Nodes all{0, static_cast<int>(tables_.angles().size())};
+    const auto out = outwards(e);
+    for (int g = 0; g < kernels_.groups(); ++g)
+        for (int b = 0; b < batches; ++b) {
+            const ScrambledPoints points = points_of(options_, e, g, b);
+            for (int k = 0; k < per_batch_; ++k) {
+                if (!arrives(g, e, b, k)) continue;
+                const IonSample ion =
+                    kernels_.distribution(g).sample(points.four(static_cast<std::uint32_t>(k)));
+                kernels_.add(selection, g, arrival(ion, out, b), all, rows);
+            }
+        }
+}
+
+/// Elements that lie close together at once, and those that they are averaged over.
+void FullGather::visit_rows(const DirectIons::UseRows& use) const {
+    const std::vector<int> order = spatial_order(surface_);
+    const std::size_t angles = tables_.angles().size();
+    std::vector<int> local(order.size(), -1), near;
+    std::vector<float> rows;
+    for (std::size_t begin = 0; begin < order.size(); begin += chunk_elements) {
+        const std::size_t end = std::min(order.size(), begin + chunk_elements);
+        near.clear();
+        Materials materials = 0;
+        for (std::size_t i = begin; i < end; ++i) {
+            const MaterialsInReach& reach = *wanted_.reach;
+            for (int r = reach.first[order[i]]; r < reach.first[order[i] + 1]; ++r)
+                materials |= bit_of(reach.material[r]);
+            over_parts(order[i], [&](int f, double) {
+                if (local[f] >= 0) return;
+                local[f] = static_cast<int>(near.size());
+                near.push_back(f);
+            });
+        }
+        const Selection selection = select(materials);
+        const std::size_t size = selection.sums.size() * angles;
+        rows.resize(near.size() * size);
+        using Range = tbb::blocked_range<std::size_t>;
+        tbb::parallel_for(Range(0, near.size(), 16), [&](const Range& range) {
+            std::vector<double> one(size);
+            for (std::size_t i = range.begin(); i != range.end(); ++i) {
+                std::fill(one.begin(), one.end(), 0.0);
+                add_again(near[i], selection, one);
+                std::copy(one.begin(), one.end(), rows.begin() + i * size);
+            }
+        });
+        tbb::parallel_for(Range(begin, end, 16), [&](const Range& range) {
+            std::vector<double> mean(size);
+            for (std::size_t i = range.begin(); i != range.end(); ++i) {
+                std::fill(mean.begin(), mean.end(), 0.0);
+                over_parts(order[i], [&](int f, double weight) {
+                    const float* from = rows.data() + local[f] * size;
+                    for (std::size_t k = 0; k < size; ++k)
+                        mean[k] += weight * from[k];
+                });
+                use(order[i], {mean.data(), selection.place.data(), angles});
+            }
+        });
+        for (const int f : near)
+            local[f] = -1;
+    }
+}
 
 } // namespace
 
-DirectIons::SkyRay sky_ray(const geometry::Surface& surface, const IonDistribution& distribution,
-                           const DirectIons::Options& options, int e, int group, int batch, int k) {
-    const ScrambledPoints points(
-        stream_key(options.seed, stream, options.refresh, e, group, batch));
-    const auto index = static_cast<std::uint32_t>(k);
-    // Spread over the element, so that the flux is its mean and not that of its centre.
-    const auto place = points.pair(index, 2);
-    return {launch_from(surface, e, place[0], place[1]), distribution.sample(points.four(index))};
-}
-
-DirectIons::Gathered gather_full(const geometry::Domain& domain, const geometry::Surface& surface,
-                                 const geometry::RayCaster& caster, const IonTables& tables,
-                                 const DirectIons::Options& options) {
-    return FullGather(domain, surface, caster, tables, options).run();
+std::unique_ptr<IonGather> gather_full(const geometry::Domain& domain,
+                                       const geometry::Surface& surface,
+                                       const geometry::RayCaster& caster, const IonTables& tables,
+                                       const WantedSums& wanted,
+                                       const DirectIons::Options& options) {
+    return std::make_unique<FullGather>(domain, surface, caster, tables, wanted, options);
 }
 
 } // namespace rille::fluxes

@@ -27,6 +27,10 @@ namespace rille::fluxes {
 /// order, so that the rays of neighbours complete each other: the drift of particles along a deep
 /// wall, which decides about its floor, is averaged over many elements.
 ///
+/// What comes out of solve() is not linear in the rows, so that their noise leaves a bias of second
+/// order: at the floor of a round hole of aspect ratio 20 (s_w 0.01, s_b 0.1) -0.4 % with 64 rays,
+/// -0.2 % with 128, -0.1 % with 256 (measured, +- 0.1 %). It does not average out over refreshes.
+///
 /// The batches are independent of each other: each has its own scramble of launch points and
 /// directions. Elements without any path to the open (closed voids) receive nothing.
 class Exchange : public ExchangeOperator {

@@ -3,10 +3,12 @@
 
 #include "fluxes/ion_reflection.hpp"
 
+#include <tbb/blocked_range.h>
 #include <tbb/parallel_for.h>
 
 #include <algorithm>
 #include <cmath>
+#include <numeric>
 
 namespace rille::fluxes {
 namespace {
@@ -177,61 +179,74 @@ Strike ExtrudedStrikes::draw(int ion, int, const ScrambledPoints& points, std::u
             carried, {p0[1], p1[1]}};
 }
 
-double FullStrikes::guide(int ion, int element, int ray) const {
-    const DirectIons::SeenRay& seen = scene_.direct.seen(ion, element)[ray];
-    if (!(seen.received > 0)) return 0;
-    return seen.received * scene_.bound(scene_.material[element], seen.cosine);
+namespace {
+
+/// (r . n) / r_z of an ion that arrives, or 0 behind the element.
+double received(const Launch& place, const IonSample& ion) {
+    const Vec3 from = -ion.direction;
+    return std::max(0.0, from.dot(place.normal)) / from.z;
+}
+
+} // namespace
+
+double FullStrikes::guide(const Launcher& launcher, int group, int element, int batch,
+                          int k) const {
+    const DirectIons& direct = scene_.direct;
+    if (!direct.arrives(group, element, batch, k)) return 0;
+    const IonSample ion = direct.ion(group, element, batch, k);
+    const double bound =
+        scene_.bound(scene_.material[element], -scene_.normal[element].dot(ion.direction));
+    if (!(bound > 0)) return 0;
+    return bound * received(direct.place(launcher, group, element, batch, k), ion);
 }
 
 FullStrikes::FullStrikes(const StrikeScene& scene) : scene_(scene) {
-    const auto& ions = scene.direct.tables().ions();
-    const int per_batch = scene.direct.rays_per_batch();
-    const std::size_t count = scene.surface.size();
-    std::vector<double> area(count); // of warped quads more than their projection
-    for (std::size_t e = 0; e < count; ++e)
-        area[e] = launch_area(scene.surface, static_cast<int>(e));
-    below_.resize(ions.size() * batches);
-    tbb::parallel_for(std::size_t(0), below_.size(), [&](std::size_t i) {
-        const int ion = static_cast<int>(i) / batches, batch = static_cast<int>(i) % batches;
-        below_[i].assign(1, 0.0);
-        below_[i].reserve(count + 1);
-        for (std::size_t e = 0; e < count; ++e) {
-            double sum = 0;
-            for (int k = 0; k < per_batch; ++k)
-                sum += guide(ion, static_cast<int>(e), batch * per_batch + k);
-            below_[i].push_back(below_[i].back() + sum * ions[ion].flux * area[e] / per_batch);
+    const int per_batch = scene.direct.rays_per_batch(), groups = scene.direct.groups();
+    const int count = static_cast<int>(scene.surface.size());
+    below_.assign(groups * batches, std::vector<double>(count + 1, 0.0));
+    tbb::parallel_for(tbb::blocked_range<int>(0, count, 64), [&](const auto& range) {
+        for (int e = range.begin(); e != range.end(); ++e) {
+            if (!(scene.bound(scene.material[e], 0) > 0)) continue;
+            const Launcher launcher(scene.surface, e);
+            // Of warped quads the area is more than their projection.
+            const double share = launcher.area() / per_batch;
+            for (std::size_t i = 0; i < below_.size(); ++i)
+                for (int k = 0; k < per_batch; ++k)
+                    below_[i][e + 1] +=
+                        share * guide(launcher, int(i) / batches, e, int(i) % batches, k);
         }
+    });
+    tbb::parallel_for(std::size_t(0), below_.size(), [&](std::size_t i) {
+        std::partial_sum(below_[i].begin(), below_[i].end(), below_[i].begin());
     });
 }
 
 double FullStrikes::total(int ion, int batch) const {
-    return below_[ion * batches + batch].back();
+    return scene_.direct.tables().ions()[ion].flux * below(ion, batch).back();
 }
 
 Strike FullStrikes::draw(int ion, int batch, const ScrambledPoints& points, std::uint32_t index,
                          int count) const {
-    const int per_batch = scene_.direct.rays_per_batch();
-    const auto& below = below_[ion * batches + batch];
+    const int per_batch = scene_.direct.rays_per_batch(), group = scene_.direct.group_of(ion);
     const auto p0 = points.pair(index, 0);
-    const Drawn drawn = draw_from(below, p0[0]);
+    const Drawn drawn = draw_from(below(ion, batch), p0[0]);
     const int e = static_cast<int>(drawn.index);
+    const Launcher launcher(scene_.surface, e);
+    std::vector<double> part(per_batch);
     double all = 0;
     for (int k = 0; k < per_batch; ++k)
-        all += guide(ion, e, batch * per_batch + k);
+        all += part[k] = guide(launcher, group, e, batch, k);
     double left = drawn.part * all;
     int ray = -1;
     for (int k = 0; k < per_batch && (ray < 0 || left >= 0); ++k) {
-        const double own = guide(ion, e, batch * per_batch + k);
-        if (!(own > 0)) continue;
+        if (!(part[k] > 0)) continue;
         ray = k;
-        left -= own;
+        left -= part[k];
     }
-    const DirectIons::SeenRay& seen = scene_.direct.seen(ion, e)[batch * per_batch + ray];
-    const auto start = scene_.direct.ray(scene_.surface, ion, e, batch, ray);
-    const double carried =
-        below.back() / count * seen.received / guide(ion, e, batch * per_batch + ray);
-    return {e,         start.from.point, start.from.normal,
-            start.ion, carried,          {p0[1], points.pair(index, 1)[0]}};
+    const IonSample drawn_ion = scene_.direct.ion(group, e, batch, ray);
+    const Launch place = scene_.direct.place(launcher, group, e, batch, ray);
+    const double carried = total(ion, batch) / count * received(place, drawn_ion) / part[ray];
+    return {e, place.point, place.normal, drawn_ion, carried, {p0[1], points.pair(index, 1)[0]}};
 }
 
 } // namespace rille::fluxes

@@ -104,10 +104,14 @@ public:
                 int count) const;
 
 private:
-    double guide(int ion, int element, int ray) const;
+    /// What a ray brings to its element times the bound of the reflection probability there.
+    double guide(const Launcher&, int group, int element, int batch, int ray) const;
+    const std::vector<double>& below(int ion, int batch) const {
+        return below_[scene_.direct.group_of(ion) * batches + batch];
+    }
 
     const StrikeScene& scene_;
-    /// [ion * 8 + batch]: running sums over elements.
+    /// [group * 8 + batch]: running sums over elements, in units of the open flux.
     std::vector<std::vector<double>> below_;
 };
 

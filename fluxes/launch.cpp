@@ -1,8 +1,6 @@
 // SPDX-License-Identifier: Apache-2.0
 #include "fluxes/launch.hpp"
 
-#include "geometry/facets.hpp"
-
 #include <cmath>
 
 namespace rille::fluxes {
@@ -10,22 +8,6 @@ namespace rille::fluxes {
 using geometry::Vec3;
 
 namespace {
-
-/// The two facets of a quad, twice their areas along their normals, and how much of them counts: a
-/// facet folded over its neighbour looks into the solid, nothing starts there.
-struct Facets {
-    geometry::Facet facet[2];
-    Vec3 cross[2];
-    double size[2];
-
-    Facets(const geometry::Surface& s, int element) {
-        for (int i = 0; i < 2; ++i) {
-            facet[i] = geometry::facet(s.vertices, s.corners[element], i);
-            cross[i] = facet[i].cross();
-            size[i] = cross[i].dot(s.normal[element]) > 0 ? cross[i].length() : 0.0;
-        }
-    }
-};
 
 /// The square of the distance from the axis is spread evenly.
 Launch launch_from_frustum(const geometry::Surface& s, int element, double u) {
@@ -37,25 +19,34 @@ Launch launch_from_frustum(const geometry::Surface& s, int element, double u) {
 
 } // namespace
 
-double launch_area(const geometry::Surface& surface, int element) {
-    if (surface.corners[element][2] < 0) return surface.area[element];
-    const Facets facets(surface, element);
-    return 0.5 * (facets.size[0] + facets.size[1]);
+Launcher::Launcher(const geometry::Surface& s, int element)
+    : surface_(s), element_(element), frustum_(s.corners[element][2] < 0) {
+    for (int i = 0; i < 2 && !frustum_; ++i) {
+        facet_[i] = geometry::facet(s.vertices, s.corners[element], i);
+        const Vec3 cross = facet_[i].cross();
+        size_[i] = cross.dot(s.normal[element]) > 0 ? cross.length() : 0.0;
+        if (size_[i] > 0) normal_[i] = cross / size_[i];
+    }
+}
+
+double Launcher::area() const {
+    return frustum_ ? surface_.area[element_] : 0.5 * (size_[0] + size_[1]);
+}
+
+Launch Launcher::operator()(double u, double v) const {
+    if (frustum_) return launch_from_frustum(surface_, element_, u);
+    const double all = size_[0] + size_[1];
+    if (!(all > 0)) return {surface_.centre[element_], surface_.normal[element_]};
+    const double share = size_[0] / all;
+    const int which = u < share || !(size_[1] > 0) ? 0 : 1;
+    const double w = which == 0 ? u / share : (u - share) / (1 - share);
+    const double root = std::sqrt(w); // even over the triangle
+    const geometry::Facet& f = facet_[which];
+    return {f.a + (f.b - f.a) * (root * (1 - v)) + (f.c - f.a) * (root * v), normal_[which]};
 }
 
 Launch launch_from(const geometry::Surface& s, int element, double u, double v) {
-    if (s.corners[element][2] < 0) return launch_from_frustum(s, element, u);
-    const Facets facets(s, element);
-    const auto& [both, cross, size] = facets;
-    const double all = size[0] + size[1];
-    if (!(all > 0)) return {s.centre[element], s.normal[element]};
-    const double share = size[0] / all;
-    const int which = u < share || !(size[1] > 0) ? 0 : 1;
-    const double w = which == 0 ? u / share : (u - share) / (1 - share);
-    const double root = std::sqrt(w); // even over the triangle
-    const geometry::Facet& f = both[which];
-    return {f.a + (f.b - f.a) * (root * (1 - v)) + (f.c - f.a) * (root * v),
-            cross[which] / size[which]};
+    return Launcher(s, element)(u, v);
 }
 
 geometry::Vec3 cosine_direction(const geometry::Vec3& n, double u, double v) {

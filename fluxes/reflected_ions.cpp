@@ -1,7 +1,6 @@
 // SPDX-License-Identifier: Apache-2.0
 #include "fluxes/reflected_ions.hpp"
 
-#include "fluxes/arc_average.hpp"
 #include "fluxes/first_strikes.hpp"
 #include "fluxes/ion_reflection.hpp"
 #include "fluxes/sampling.hpp"
@@ -11,6 +10,7 @@
 
 #include <algorithm>
 #include <cmath>
+#include <numeric>
 
 namespace rille::fluxes {
 namespace {
@@ -23,11 +23,8 @@ constexpr int chunk_ions = 512;
 constexpr double roulette_below = 0.05;
 constexpr int longest_path = 100000; ///< hits; counted as lost, not cut silently
 
-/// One contribution, in the order in which a chunk's ions made it.
-struct Deposit {
-    std::size_t slot; ///< (bounce class * tallies + m) * elements + e
-    double value;
-};
+using Deposit = ReflectedIons::Deposit;
+
 /// Towards where an arrival comes from, times its flux.
 struct Origin {
     int element;
@@ -35,8 +32,8 @@ struct Origin {
 };
 struct Chunk {
     int ion = 0, batch = 0, first = 0, count = 0;
-    int of = 0; ///< ions of this species in the batch
-    std::vector<Deposit> deposits;
+    int of = 0;                    ///< ions of this species in the batch
+    std::vector<Deposit> deposits; ///< in the order in which the ions made them
     std::vector<Origin> origins;
     double lost = 0; ///< flux times area
 };
@@ -49,8 +46,8 @@ public:
            const ReflectionOptions& options)
         : domain_(domain), surface_(surface), caster_(caster), material_(material),
           ions_(direct.tables().ions()), tallies_(direct.tables().tallies()),
-          reflection_(reflection), options_(options), average_(arc_average(domain, surface)),
-          normal_(averaged_normals(surface, average_)),
+          reflection_(reflection), options_(options), wanted_(direct.wanted()),
+          average_(direct.average()), normal_(direct.normal()),
           bound_(reflection), scene_{domain, surface, material, normal_, bound_, direct},
           strikes_(make_strikes()) {
         for (const IonReflection& law : reflection)
@@ -59,10 +56,7 @@ public:
                                     : -1);
         for (std::size_t s = 0; s < ions_.size(); ++s) {
             least_energy_.push_back(least_energy(static_cast<int>(s)));
-            own_tallies_.emplace_back();
-            for (std::size_t m = 0; m < tallies_.size(); ++m)
-                if (tallies_[m].ion == static_cast<int>(s))
-                    own_tallies_.back().push_back(static_cast<int>(m));
+            own_sums_.push_back(sums_of(static_cast<int>(s)));
         }
     }
 
@@ -73,40 +67,21 @@ public:
                 follow(chunks[c], chunks[c].first + i);
         });
         ReflectedIons result;
-        const std::size_t slots = tallies_.size() * surface_.size();
-        const bool apart = options_.bounces_by_batch;
-        result.value.assign(batches, std::vector<double>(slots, 0.0));
-        if (options_.bounces)
-            result.by_bounces.assign(apart ? batches : 1,
-                                     std::vector<double>(bounce_classes * slots));
+        result.sums = static_cast<int>(wanted_.members.size());
+        if (options_.averaged) result.average = average_;
         std::vector<double> up(surface_.size(), 0.0), along(surface_.size(), 0.0);
-        const double share = apart ? 1.0 : 1.0 / batches;
         double lost = 0, incident = 0;
         for (const IonSource& ion : ions_)
             incident += ion.flux * domain_.base_area();
-        // Each sum in the order of the chunks; batch after batch lie apart.
-        tbb::parallel_for(0, batches + 2, [&](int part) {
-            for (const Chunk& chunk : chunks) {
-                if (part == chunk.batch)
-                    for (const Deposit& d : chunk.deposits)
-                        result.value[part][d.slot % slots] += d.value;
-                if (part == batches && options_.bounces)
-                    for (const Deposit& d : chunk.deposits)
-                        result.by_bounces[apart ? chunk.batch : 0][d.slot] += share * d.value;
-                if (part <= batches) continue;
-                lost += chunk.lost / batches;
-                for (const Origin& o : chunk.origins) {
-                    up[o.element] += o.up;
-                    along[o.element] += o.along;
-                }
+        for (const Chunk& chunk : chunks) {
+            for (const Origin& o : chunk.origins) {
+                up[o.element] += o.up;
+                along[o.element] += o.along;
             }
-        });
-        chunks.clear();
-        result.from_angle = angles_of(up, along);
-        if (options_.averaged) {
-            average(result.value, tallies_.size());
-            average(result.by_bounces, bounce_classes * tallies_.size());
+            lost += chunk.lost / batches;
         }
+        sort_deposits(chunks, result);
+        result.from_angle = angles_of(up, along);
         result.lost_share = incident > 0 ? lost / incident : 0.0;
         return result;
     }
@@ -128,20 +103,42 @@ private:
                                   const std::vector<double>& along) const {
         std::vector<double> angle(surface_.size());
         for (std::size_t e = 0; e < angle.size(); ++e) {
-            const double z = average_.of(up, int(e)), h = average_.of(along, int(e));
+            const double z = average_->of(up, int(e)), h = average_->of(along, int(e));
             angle[e] = z != 0 || h != 0 ? std::atan2(h, z) : own_angle(e);
         }
         return angle;
     }
 
-    void average(std::vector<std::vector<double>>& value, std::size_t tallies) const {
-        const std::size_t count = surface_.size();
-        tbb::parallel_for(std::size_t(0), value.size() * tallies, [&](std::size_t i) {
-            double* tally = value[i / tallies].data() + i % tallies * count;
-            const std::vector<double> raw(tally, tally + count);
-            for (std::size_t e = 0; e < count; ++e)
-                tally[e] = average_.of(raw, static_cast<int>(e));
-        });
+    /// By elements, and in the order of the chunks on each.
+    void sort_deposits(std::vector<Chunk>& chunks, ReflectedIons& result) const {
+        result.first.assign(surface_.size() + 1, 0);
+        for (const Chunk& chunk : chunks)
+            for (const Deposit& d : chunk.deposits)
+                ++result.first[d.element + 1];
+        std::partial_sum(result.first.begin(), result.first.end(), result.first.begin());
+        result.deposits.resize(result.first.back());
+        std::vector<int> next = result.first;
+        for (Chunk& chunk : chunks) {
+            for (const Deposit& d : chunk.deposits)
+                result.deposits[next[d.element]++] = d;
+            std::vector<Deposit>().swap(chunk.deposits);
+        }
+    }
+
+    /// Tallies of one ion species by the sum that they count for.
+    struct OwnSum {
+        int sum;
+        std::vector<int> tallies;
+    };
+    std::vector<OwnSum> sums_of(int ion) const {
+        std::vector<OwnSum> sums;
+        for (std::size_t s = 0; s < wanted_.members.size(); ++s) {
+            OwnSum own{static_cast<int>(s), {}};
+            for (const int m : wanted_.members[s])
+                if (tallies_[m].ion == ion) own.tallies.push_back(m);
+            if (!own.tallies.empty()) sums.push_back(std::move(own));
+        }
+        return sums;
     }
 
     FirstStrikes make_strikes() const {
@@ -183,7 +180,7 @@ private:
         }
         return chunks;
     }
-    bool acts(int ion) const { return !own_tallies_[ion].empty(); }
+    bool acts(int ion) const { return !own_sums_[ion].empty(); }
 
     /// One ion from its first contact until it stays, leaves, or cannot do anything any more.
     void follow(Chunk& chunk, int index) const {
@@ -257,10 +254,13 @@ private:
         const double flux = carried / surface_.area[hit.element];
         chunk.origins.push_back({hit.element, -flux * hit.direction.z,
                                  -flux * along_normal(hit.direction, hit.element)});
-        for (const int m : own_tallies_[chunk.ion]) {
-            const double value = flux * tallies_[m].yield(energy, cosine);
-            const std::size_t row = bounces * tallies_.size() + m;
-            if (value != 0) chunk.deposits.push_back({row * surface_.size() + hit.element, value});
+        const std::size_t row = chunk.batch * bounce_classes + bounces;
+        for (const OwnSum& own : own_sums_[chunk.ion]) {
+            double value = 0;
+            for (const int m : own.tallies)
+                value += flux * tallies_[m].yield(energy, cosine);
+            const std::size_t slot = row * wanted_.members.size() + own.sum;
+            if (value != 0) chunk.deposits.push_back({hit.element, static_cast<int>(slot), value});
         }
     }
 
@@ -272,17 +272,30 @@ private:
     const std::vector<Tally>& tallies_;
     const std::vector<IonReflection>& reflection_;
     const ReflectionOptions& options_;
-    ArcAverage average_;
-    std::vector<Vec3> normal_;
+    const WantedSums& wanted_;
+    std::shared_ptr<const ArcAverage> average_;
+    const std::vector<Vec3>& normal_;
     ReflectionBound bound_;
     StrikeScene scene_;
     FirstStrikes strikes_;
     std::vector<double> critical_;     ///< per material: no reflection at cosines from here on
     std::vector<double> least_energy_; ///< per ion species [eV]
-    std::vector<std::vector<int>> own_tallies_; ///< per ion species
+    std::vector<std::vector<OwnSum>> own_sums_; ///< per ion species
 };
 
 } // namespace
+
+void ReflectedIons::at(int element, std::vector<double>& value) const {
+    value.assign(slots(), 0.0);
+    if (first.empty()) return;
+    const auto add = [&](int from, double weight) {
+        for (int i = first[from]; i < first[from + 1]; ++i)
+            value[deposits[i].slot] += weight * deposits[i].value;
+    };
+    if (!average) return add(element, 1);
+    for (int i = average->first[element]; i < average->first[element + 1]; ++i)
+        add(average->parts[i].element, average->parts[i].weight);
+}
 
 double share_after_turn(double own, double from, double angle) {
     constexpr double idle = 10 * degree, right = 90 * degree;

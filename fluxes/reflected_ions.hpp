@@ -1,6 +1,7 @@
 // SPDX-License-Identifier: Apache-2.0
 #pragma once
 
+#include "fluxes/arc_average.hpp"
 #include "fluxes/causes.hpp"
 #include "fluxes/direct_ions.hpp"
 #include "fluxes/exchange.hpp"
@@ -9,17 +10,30 @@
 #include "geometry/ray_caster.hpp"
 #include "geometry/surface.hpp"
 
+#include <memory>
 #include <vector>
 
 namespace rille::fluxes {
 
-/// Tallies of ions after one or more reflections, per element, with 8 independent batches.
+/// Sums of tallies of ions after one or more reflections, per element, with 8 independent batches.
+/// Held as what single hits bring: their number does not grow with the surface.
 struct ReflectedIons {
-    /// value[b][m * elements + e]: tally m at element e by batch b [nm^-2 s^-1].
-    std::vector<std::vector<double>> value;
-    /// The same by bounces, (k * tallies + m) * elements + e with k = 0, 1, 2 for ions after 1, 2
-    /// and 3 or more: the mean over the batches or, if asked for, one of each batch.
-    std::vector<std::vector<double>> by_bounces;
+    struct Deposit {
+        int element;
+        int slot;     ///< (batch * bounce_classes + k) * sums + s, k = 0, 1, 2 for ions after 1, 2
+                      ///< and 3 or more bounces
+        double value; ///< to sum s [nm^-2 s^-1]
+    };
+    int sums = 0;
+    std::vector<Deposit> deposits; ///< element after element
+    std::vector<int> first;        ///< of each element, one more at the end; or empty
+    /// What is averaged over; null: each element stands for itself.
+    std::shared_ptr<const ArcAverage> average;
+
+    std::size_t slots() const { return std::size_t(batches) * bounce_classes * sums; }
+    /// What comes to an element: value[slot].
+    void at(int element, std::vector<double>& value) const;
+
     /// Where they come from: angle of the mean direction towards their origin, weighted by flux, in
     /// the plane of the element's normal and z (convention of geometry::NormalRates); the
     /// normal's own angle where none come.
@@ -37,14 +51,12 @@ struct ReflectionOptions {
     /// Tallies averaged over the surroundings like the direct ones: over about five cells of
     /// surface, never across a corner, sums kept.
     bool averaged = true;
-    bool bounces = true;           ///< whether ReflectedIons::by_bounces is filled
-    bool bounces_by_batch = false; ///< ReflectedIons::by_bounces of each batch
 };
 
 /// Ions are drawn where they first strike, in proportion to the direct flux times the probability
 /// of reflection, and followed from there: fixed chunks, each with its own buffer, summed in order.
 /// `reflection[m]` is the law of material m; material[e] the material at each element. Ions and
-/// tallies are those of `direct`, gathered on the same surface. Direct arrivals are not tallied.
+/// sums are those of `direct`, gathered on the same surface. Direct arrivals are not tallied.
 ReflectedIons trace_reflected(const geometry::Domain&, const geometry::Surface&,
                               const geometry::RayCaster&, const std::vector<int>& material,
                               const DirectIons& direct,

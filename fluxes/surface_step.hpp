@@ -5,6 +5,7 @@
 #include "fluxes/exchange.hpp"
 #include "fluxes/ion_tables.hpp"
 #include "fluxes/ions.hpp"
+#include "fluxes/materials_in_reach.hpp"
 #include "fluxes/mechanism.hpp"
 #include "geometry/domain.hpp"
 #include "geometry/rates.hpp"
@@ -41,12 +42,6 @@ struct Sampling {
     std::uint64_t refresh = 0;
     bool causes = false;   ///< SurfaceStep::cause and supply are filled
     bool detailed = false; ///< these and SurfaceStep::detail are filled
-};
-
-/// Materials that a step may meet at each element, outermost first: reach[first[e]..first[e + 1]).
-struct MaterialsInReach {
-    std::vector<int> first;
-    std::vector<int> material;
 };
 
 /// What lies behind a step, path by path and batch by batch, for the asking.

@@ -16,6 +16,7 @@ namespace {
 constexpr double unresolved = 0.02;  ///< steepness off by more comes from a bend within a cell
 constexpr double most_move = 0.5;    ///< [cells] of one sub-step; less than layer_reach
 constexpr double smooth_share = 0.9; ///< Courant number where no edge is near: stable below 1
+constexpr double most_share = 1;     ///< Courant number up to which a second stage is taken
 constexpr double edge_margin = 1.4;  ///< [cells] the contour may come nearer the edge of the band
 
 } // namespace
@@ -123,15 +124,18 @@ void Advance::sweep(const double* phi, std::size_t begin, std::size_t end, const
 }
 
 /// The same at the mean rate over `dt` through layers: each acts for its share of the time.
-double Advance::layered_change(const Slopes& s, const Layers& layers, bool fan, double dt) const {
+double Advance::layered_change(const Slopes& s, const Layers& layers, bool fan, double dt,
+                               double& waves) const {
     std::array<double, Layers::capacity> share;
     const double angle = tilt_of(planar_, s.mean(0), s.mean(1), s.mean(2)).angle;
     walk(tables_, layers, angle, dt, share);
     double sum = 0;
+    waves = 0;
     for (int k = 0; k < layers.count; ++k) {
         Speed speed;
-        if (share[k] > 0 && layers.row[k].row >= 0)
-            sum += share[k] * change(s, layers.row[k], {}, fan, speed);
+        if (!(share[k] > 0 && layers.row[k].row >= 0)) continue;
+        sum += share[k] * change(s, layers.row[k], {}, fan, speed);
+        waves = std::max(waves, speed.waves);
     }
     return sum;
 }
@@ -165,17 +169,21 @@ void Advance::over_layered(const Body& body) {
     });
 }
 
+/// What smooth cells' speeds count, since twice the share will do there.
+double Advance::ease() const {
+    return limits_.max_share / std::min(2 * limits_.max_share, smooth_share);
+}
+
 Speed Advance::first_stage() {
     Speed most;
     const double* phi = band_.phi.data();
     std::vector<double> front(band_.size() / 1024 + 2, 0.0);
     most.waves = largest_of_ranges(band_.size(), [&](std::size_t begin, std::size_t end) {
-        const double ease = limits_.max_share / std::min(2 * limits_.max_share, smooth_share);
         double waves = 0, fastest = 0;
         std::fill(slope_.begin() + begin, slope_.begin() + end, 0.0);
         sweep(phi, begin, end, [&](std::size_t c, double change, const Speed& speed) {
             slope_[c] = change;
-            waves = std::max(waves, speed.smooth ? ease * speed.waves : speed.waves);
+            waves = std::max(waves, speed.smooth ? ease() * speed.waves : speed.waves);
             if (std::fabs(phi[c]) < h_) fastest = std::max(fastest, std::fabs(speed.rate));
         });
         front[begin / 1024] = fastest;
@@ -200,30 +208,51 @@ double Advance::choose_step(const Speed& most) const {
     return dt;
 }
 
-void Advance::step(double dt) {
+/// Mean dphi/dt of both stages in place of that of the first; the largest speed of waves in the
+/// second. Where the rate turns steeply with the normal it may be many times that of the first, and
+/// dissipation at that speed would throw phi about.
+double Advance::second_stage(double dt) {
     over_layered([&](std::size_t l) {
         const std::size_t c = layered_[l].cell;
+        double waves;
         slope_[c] = layered_change(special_slopes(band_.phi.data(), layered_[l]),
-                                   layered_[l].layers, fan_[c], dt);
+                                   layered_[l].layers, fan_[c], dt, waves);
     });
     for_ranges(band_.size(), [&](std::size_t begin, std::size_t end) {
         for (std::size_t c = begin; c < end; ++c)
             next_[c] = band_.phi[c] + dt * slope_[c];
     });
     const double* next = next_.data();
-    for_ranges(band_.size(), [&](std::size_t begin, std::size_t end) {
-        sweep(next, begin, end, [&](std::size_t c, double second, const Speed&) {
-            band_.phi[c] += 0.5 * dt * (slope_[c] + second);
+    double most = largest_of_ranges(band_.size(), [&](std::size_t begin, std::size_t end) {
+        double waves = 0;
+        sweep(next, begin, end, [&](std::size_t c, double second, const Speed& speed) {
+            slope_[c] = 0.5 * (slope_[c] + second);
+            waves = std::max(waves, speed.smooth ? ease() * speed.waves : speed.waves);
         });
+        return waves;
     });
+    std::vector<double> layered(layered_.size());
     over_layered([&](std::size_t l) {
         const LayeredCell& at = layered_[l];
-        const std::size_t c = at.cell;
-        const double second = layered_change(special_slopes(next, at), at.layers, fan_[c], dt);
-        const double time = report_.time + dt - time_of_refresh_;
-        band_.phi[c] =
-            std::min(band_.phi[c] + 0.5 * dt * (slope_[c] + second), at.wall + at.wall_rate * time);
+        const double second =
+            layered_change(special_slopes(next, at), at.layers, fan_[at.cell], dt, layered[l]);
+        slope_[at.cell] = 0.5 * (slope_[at.cell] + second);
     });
+    for (const double waves : layered)
+        most = std::max(most, waves);
+    return most;
+}
+
+/// By the mean of both stages.
+void Advance::step(double dt) {
+    for_ranges(band_.size(), [&](std::size_t begin, std::size_t end) {
+        for (std::size_t c = begin; c < end; ++c)
+            band_.phi[c] += dt * slope_[c];
+    });
+    for (const LayeredCell& at : layered_) {
+        const double time = report_.time + dt - time_of_refresh_;
+        band_.phi[at.cell] = std::min(band_.phi[at.cell], at.wall + at.wall_rate * time);
+    }
     move_elements(dt);
 }
 
@@ -265,7 +294,11 @@ AdvanceReport Advance::run() {
         if (moved_since_refresh_ > refresh_move) refresh();
         const Speed most = first_stage();
         if (!std::isfinite(most.waves)) throw NumericsError("a rate at the front is not finite");
-        const double dt = choose_step(most);
+        double dt = choose_step(most);
+        for (double waves; (waves = second_stage(dt)) * dt > most_share * h_;) {
+            first_stage();
+            dt = limits_.max_share * h_ / waves;
+        }
         const bool last = dt >= limits_.time - report_.time;
         step(dt);
         ++report_.sub_steps;

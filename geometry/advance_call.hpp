@@ -80,10 +80,12 @@ private:
     void sweep(const double* phi, std::size_t begin, std::size_t end, const Take& take) const;
     template <class Body>
     void over_layered(const Body& body);
-    double layered_change(const Slopes&, const Layers&, bool fan, double dt) const;
+    double layered_change(const Slopes&, const Layers&, bool fan, double dt, double& waves) const;
+    double ease() const;
     Speed first_stage();
     Speed find_layers(LayeredCell&) const; ///< its largest speeds
     double choose_step(const Speed&) const;
+    double second_stage(double dt);
     void step(double dt);
     void move_elements(double dt);
     void take_from_films(int e, double dt);
@@ -107,7 +109,7 @@ private:
     RawVector<RowPair> row_;
     /// planar contour: whether the nearest point is a sharp corner; full: see find_even_cells.
     RawVector<char> fan_;
-    RawVector<double> slope_, next_; ///< dphi/dt at the first stage; phi after it
+    RawVector<double> slope_, next_; ///< dphi/dt, first of the first stage; phi after that
     std::vector<LayeredCell> layered_;
     std::vector<int> layered_elements_;
     RawVector<Tilt> element_tilt_;

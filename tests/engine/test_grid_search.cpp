@@ -73,6 +73,33 @@ TEST_CASE("the grid error of a value that is linear in the spacing", "[engine][g
         assess_grid_error(own, 1, true, companions);
         CHECK(*own[0].grid_error > 0.5);
     }
+    SECTION("a grid with the edges where the own one has them counts alone") {
+        companions[2].metrics[0].value = 60 + 0.3 * 2 + 0.5; // tells 0.8, 0.8 and 0.3 as mean
+        companions[3].metrics[0].value = 60 + 0.3 * 2.1 - 0.5;
+        assess_grid_error(own, 1, true, companions);
+        const double without = *own[0].grid_error;
+        companions[2].edge_offset = 0;
+        assess_grid_error(own, 1, true, companions);
+        CHECK(*own[0].grid_error > without + 0.1);
+    }
+    SECTION("too few grids of twice the spacing leave the line") {
+        companions[1].spacing = companions[2].spacing = 1.5;
+        for (int i : {1, 2})
+            companions[i].metrics[0].value = 60 + 0.3 * 1.5;
+        assess_grid_error(own, 1, true, companions);
+        CHECK(*own[0].grid_error == Approx(0.3).epsilon(1e-9));
+    }
+    SECTION("the widest CD is no surer than all the others") {
+        own.push_back(own[0]);
+        own.back().name = "bow cd";
+        for (GridRun& run : companions) {
+            run.metrics.push_back(run.metrics[0]);
+            run.metrics.back().name = "bow cd";
+            run.metrics.back().value = 60.3; // the same on all grids
+        }
+        assess_grid_error(own, 1, true, companions);
+        CHECK(*own[1].grid_error == Approx(0.3).epsilon(1e-9));
+    }
     SECTION("another definition under the same name is another quantity") {
         for (GridRun& run : companions)
             run.metrics[0].definition = "at z = -20 nm";
@@ -97,8 +124,10 @@ TEST_CASE("a given spacing is run alone, or with companions where asked", "[engi
     CHECK_FALSE(alone.compares());
     CHECK(follow(alone, 0.3) == std::vector<std::string>{"main 80/8192"});
     GridSearch compared(load_case(shipped, {"grid_error=assessed"}));
-    CHECK(follow(compared, 0.3) == std::vector<std::string>{"39/8192", "40/8192", "41/8192",
-                                                            "42/8192", "57/8192", "main 80/8192"});
+    // Openings from 50 to 110 nm of 160: 38 and 58 cells have their edges an eighth of a cell from
+    // where 80 have them, 40 and 57 half a cell and 0.19.
+    CHECK(follow(compared, 0.3) == std::vector<std::string>{"38/8192", "39/8192", "40/8192",
+                                                            "41/8192", "58/8192", "main 80/8192"});
     CHECK(compared.is_met());
     CHECK(compared.summary().empty());
     Metrics metrics = answer(load_case(shipped), 0.3);

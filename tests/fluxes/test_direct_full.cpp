@@ -3,6 +3,7 @@
 #include "fluxes/sampling.hpp"
 #include "tests/support/csv_table.hpp"
 #include "tests/support/one_ion.hpp"
+#include "tests/support/tabulated_ions.hpp"
 
 #include <catch2/catch.hpp>
 #include <tbb/global_control.h>
@@ -41,7 +42,7 @@ Surface hole(const Domain& d, double depth, int around) {
 
 /// Average of tally 0 over elements, by batch.
 template <class Where>
-tests::Mean average(const DirectIons& ions, const Surface& s, Where where) {
+tests::Mean average(const tests::TabulatedIons& ions, const Surface& s, Where where) {
     return tests::batch_average(
         s, [&](int b, int e) { return ions.tally_batch(b, 0, e); }, where);
 }
@@ -86,7 +87,7 @@ TEST_CASE("direct ions, full: open plane, turned normals and batches", "[direct]
     const Domain d = square(30);
     const Surface s = tests::revolved_hole(d, {{10, 0}, {0, 0}}, 24);
     const OneIon vertical(d, s, IonDistribution::beam(100, Vec3(0, 0, -1)), 2.5);
-    const DirectIons& beam = vertical.ions;
+    const tests::TabulatedIons& beam = vertical.ions;
     const auto angles = beam.rate_angles();
     CHECK(angles.size() <= 64);
     CHECK(angles.front() == 0);
@@ -98,7 +99,7 @@ TEST_CASE("direct ions, full: open plane, turned normals and batches", "[direct]
             CHECK(std::fabs(beam.tally_at(0, int(e), a) - 2.5 * std::max(0.0, std::cos(a))) < 1e-5);
     }
     const OneIon gaussian(d, s, IonDistribution::gaussian(100, 0.1));
-    const DirectIons& spread = gaussian.ions;
+    const tests::TabulatedIons& spread = gaussian.ions;
     double mean = 0;
     for (int b = 0; b < 8; ++b)
         mean += spread.tally_batch(b, 0, 5) / 8;
@@ -119,7 +120,8 @@ TEST_CASE("direct ions, full: leaning ions and mixtures", "[direct][full]") {
     const auto spectrum = IonDistribution::falling_spectrum({40, 100, 400}, {1, 2}, 0.5);
     const auto wide = IonDistribution::thermal_fall(15, 0.3, 0.3);
     const auto worst = [&](const IonDistribution& shot, const IonDistribution& expected) {
-        const DirectIons direct(d, s, caster, {{"X+", 40, 1, shot}}, {{0, per_ion}}, options);
+        const tests::TabulatedIons direct(d, s, caster, {{"X+", 40, 1, shot}}, {{0, per_ion}},
+                                          options);
         double off = 0;
         for (double psi : {0.0, 45.0, 80.0, 88.0, 92.0, 97.0}) {
             double sum = 0;
@@ -151,7 +153,7 @@ TEST_CASE("direct ions, full: same bits for any number of threads", "[direct][fu
         options.directions = 32;
         options.refresh = refresh;
         const OneIon one(d, s, IonDistribution::thermal_fall(100, 0.3, 0.3), 1, per_ion, options);
-        const DirectIons& ions = one.ions;
+        const tests::TabulatedIons& ions = one.ions;
         std::vector<double> all;
         for (std::size_t e = 0; e < s.size(); ++e) {
             all.push_back(ions.flux(0, int(e)));

@@ -2,6 +2,7 @@
 #include "fluxes/direct_ions.hpp"
 #include "tests/support/csv_table.hpp"
 #include "tests/support/one_ion.hpp"
+#include "tests/support/tabulated_ions.hpp"
 
 #include <catch2/catch.hpp>
 
@@ -31,7 +32,7 @@ IonDistribution cosine_ions() {
     return IonDistribution::thermal_fall(0, 1, 1);
 }
 
-double collected(const DirectIons& ions, const Surface& s) {
+double collected(const tests::TabulatedIons& ions, const Surface& s) {
     double sum = 0;
     for (std::size_t e = 0; e < s.size(); ++e)
         sum += ions.flux(0, int(e)) * s.area[e];

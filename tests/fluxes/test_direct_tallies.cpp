@@ -3,6 +3,7 @@
 #include "fluxes/open_sky.hpp"
 #include "tests/support/brute_caster.hpp"
 #include "tests/support/one_ion.hpp"
+#include "tests/support/tabulated_ions.hpp"
 
 #include <catch2/catch.hpp>
 #include <tbb/global_control.h>
@@ -104,7 +105,7 @@ TEST_CASE("direct ions, extruded: walls a few beam spreads from vertical", "[dir
         d.cells_x = 160;
         const Surface s = tests::leaning_trench(d, floor, depth, tilt * degree, 1.0);
         const OneIon one(d, s, IonDistribution::gaussian(100, sigma), 2.0);
-        const DirectIons& ions = one.ions;
+        const tests::TabulatedIons& ions = one.ions;
         double sum = 0, exact_sum = 0;
         for (std::size_t e = 0; e < s.size(); ++e) {
             const Vec3 c = s.centre[e];
@@ -141,7 +142,7 @@ TEST_CASE("direct ions, extruded: first-step rate of a vertical wall", "[direct]
         const Surface s = tests::trench(d, width, depth, 2.0);
         const double sigma = spread * degree;
         const OneIon one(d, s, IonDistribution::gaussian(100, sigma));
-        const DirectIons& ions = one.ions;
+        const tests::TabulatedIons& ions = one.ions;
         std::vector<double> bin(40, 0.0), area(40, 0.0), exact(40, 0.0);
         for (std::size_t e = 0; e < s.size(); ++e) {
             const Vec3 c = s.centre[e];
@@ -197,7 +198,7 @@ TEST_CASE("direct ions: tallies of a yield over an open plane", "[direct]") {
     const auto ions = spread_law(GENERATE(range(0, 6)));
     const YieldFunction yield{SquareRootLaw{0.02, 45}, YamamuraAngle{2.2, 62}, 1.0};
     const OneIon one(d, s, ions, 3.0, yield);
-    const DirectIons& direct = one.ions;
+    const tests::TabulatedIons& direct = one.ions;
     for (double psi : {0.0, 20.0, 45.0, 63.0, 75.0}) {
         double sum = 0;
         const int count = 200000;
@@ -227,7 +228,7 @@ TEST_CASE("direct ions: rates linear between the rate angles", "[direct]") {
     for (double spread : {0.5, 1.0, 4.0}) {
         const double sigma = std::tan(spread * degree);
         const OneIon one(d, s, IonDistribution::gaussian(100, sigma));
-        const DirectIons& ions = one.ions;
+        const tests::TabulatedIons& ions = one.ions;
         const auto angles = ions.rate_angles();
         CHECK(angles.size() <= 240);
         CHECK(angles.front() == -pi);
@@ -270,7 +271,7 @@ TEST_CASE("direct ions: conservative rates on a rough wall", "[direct]") {
     const Surface smooth = wall(0), rough = wall(0.0018);
     const auto law = IonDistribution::gaussian(100, 1 * degree);
     const OneIon on_smooth(d, smooth, law), on_rough(d, rough, law);
-    const DirectIons &flat = on_smooth.ions, &bumpy = on_rough.ions;
+    const tests::TabulatedIons &flat = on_smooth.ions, &bumpy = on_rough.ions;
     REQUIRE(smooth.size() == rough.size());
     double total = 0, expected = 0, worst = 0, noise = 0;
     for (std::size_t e = 0; e < smooth.size(); ++e) {
@@ -314,7 +315,7 @@ TEST_CASE("direct ions: same bits for any number of threads", "[direct]") {
         tbb::global_control limit(tbb::global_control::max_allowed_parallelism, threads);
         const OneIon one(d, s, IonDistribution::thermal_fall(100, 0.3, 0.3), 1,
                          {SquareRootLaw{0.1, 20}, YamamuraAngle{}, 1});
-        const DirectIons& ions = one.ions;
+        const tests::TabulatedIons& ions = one.ions;
         std::vector<double> all;
         for (std::size_t e = 0; e < s.size(); ++e) {
             all.push_back(ions.flux(0, int(e)));

@@ -155,7 +155,8 @@ void check(const Comparison& c) {
     CHECK(c.largest_error < 0.01);
 }
 
-/// What many runs show: a bias of a few tenths of a percent, too small for the pulls of six.
+/// What many runs show: a bias of a few tenths of a percent (see Exchange), too small for the pulls
+/// of six.
 void check_within(const Comparison& c, double limit) {
     const tests::Pulls pulls(c.pulls);
     INFO("bins " << pulls.count << " chi2/nu " << pulls.chi2_per_bin << " largest pull "

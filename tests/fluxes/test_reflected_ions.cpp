@@ -3,6 +3,7 @@
 #include "fluxes/reflected_ions.hpp"
 #include "fluxes/sampling.hpp"
 #include "tests/support/one_ion.hpp"
+#include "tests/support/tabulated_ions.hpp"
 
 #include <catch2/catch.hpp>
 #include <tbb/global_control.h>
@@ -35,7 +36,7 @@ IonReflection mirror_law(double probability) {
 template <class Where>
 Mean average(const ReflectedIons& r, const Surface& s, Where where) {
     return tests::batch_average(
-        s, [&](int b, int e) { return r.value[b][e]; }, where);
+        s, [&](int b, int e) { return tests::reflected_tally(r, b, 0, e); }, where);
 }
 
 } // namespace
@@ -193,16 +194,20 @@ TEST_CASE("reflected ions: same bits for any number of threads", "[reflected]") 
         ReflectionOptions options;
         options.ions_per_species = 16384;
         options.refresh = refresh;
-        return trace_reflected(d, s, one_ion.caster, material, one_ion.ions, {IonReflection{}},
-                               options)
-            .value;
+        const auto reflected = trace_reflected(d, s, one_ion.caster, material, one_ion.ions,
+                                               {IonReflection{}}, options);
+        std::vector<double> tallies;
+        for (int b = 0; b < batches; ++b)
+            for (std::size_t e = 0; e < s.size(); ++e)
+                tallies.push_back(tests::reflected_tally(reflected, b, 0, int(e)));
+        return tallies;
     };
     const auto one = run(1, 0);
     CHECK(run(2, 0) == one);
     CHECK(run(4, 0) == one);
     CHECK(run(1, 1) != one);
     double sum = 0;
-    for (double v : one[0])
+    for (double v : one)
         sum += v;
     CHECK(sum > 0);
 }
@@ -243,8 +248,8 @@ TEST_CASE("where reflected ions come from is found with them", "[reflected]") {
     int floors = 0, walls = 0;
     for (std::size_t e = 0; e < s.size(); ++e) {
         double comes = 0;
-        for (const auto& batch : r.value)
-            comes += batch[e];
+        for (int b = 0; b < batches; ++b)
+            comes += tests::reflected_tally(r, b, 0, int(e));
         if (s.centre[e].z > -30 || !(comes > 0)) continue;
         (s.normal[e].z > 0.9 ? floors : walls) += 1;
         CHECK(std::fabs(r.from_angle[e]) < 35 * tests::degree);

@@ -4,6 +4,7 @@
 #include "tests/support/forward_walk.hpp"
 #include "tests/support/shapes.hpp"
 #include "tests/support/statistics.hpp"
+#include "tests/support/tabulated_ions.hpp"
 
 #include <catch2/catch.hpp>
 
@@ -41,9 +42,9 @@ struct Comparison {
         std::vector<std::vector<double>> value(bins);
         double lost = 0;
         for (int r = 0; r < scrambles; ++r) {
-            const DirectIons direct(domain, surface, caster, {source},
-                                    {{0, {SquareRootLaw{1, 0}, FlatAngle{}, 1}}},
-                                    {64, 3, std::uint64_t(r)});
+            const tests::TabulatedIons direct(domain, surface, caster, {source},
+                                              {{0, {SquareRootLaw{1, 0}, FlatAngle{}, 1}}},
+                                              {64, 3, std::uint64_t(r)});
             const ReflectedIons reflected =
                 trace_reflected(domain, surface, caster, material, direct, laws,
                                 {drawn, 3, std::uint64_t(r), false});
@@ -52,8 +53,9 @@ struct Comparison {
             for (std::size_t e = 0; e < surface.size(); ++e) {
                 if (bin[e] < 0) continue;
                 area[bin[e]] += surface.area[e];
-                for (const auto& batch : reflected.value)
-                    sum[bin[e]] += surface.area[e] * batch[e] / batches;
+                for (int b = 0; b < batches; ++b)
+                    sum[bin[e]] +=
+                        surface.area[e] * tests::reflected_tally(reflected, b, 0, int(e)) / batches;
             }
             for (int b = 0; b < bins; ++b)
                 value[b].push_back(sum[b] / area[b]);

@@ -10,6 +10,7 @@
 #include "tests/support/one_ion.hpp"
 #include "tests/support/revolved_shapes.hpp"
 #include "tests/support/statistics.hpp"
+#include "tests/support/tabulated_ions.hpp"
 
 #include <catch2/catch.hpp>
 #include <tbb/global_control.h>
@@ -38,7 +39,7 @@ std::vector<tests::Mean> fluxes_of(const Domain& d, const Surface& s, const IonD
     const auto tables = std::make_shared<IonTables>(
         d.symmetry, std::vector<IonSource>{{"X+", 40, 1, ions}}, std::vector<Tally>{{0, per_ion}});
     for (int r = 0; r < refreshes; ++r) {
-        const DirectIons direct(d, s, caster, tables, {directions, 7, std::uint64_t(r)});
+        const tests::TabulatedIons direct(d, s, caster, tables, {directions, 7, std::uint64_t(r)});
         for (std::size_t e = 0; e < s.size(); ++e)
             value[e].push_back(direct.flux(0, int(e)));
     }
@@ -235,9 +236,9 @@ TEST_CASE("reflected ions in a round hole against forward walks", "[revolved][re
     std::vector<std::vector<double>> value(bins);
     double lost = 0;
     for (int r = 0; r < scrambles; ++r) {
-        const DirectIons direct(d, s, caster, {source},
-                                {{0, {SquareRootLaw{1, 0}, FlatAngle{}, 1}}},
-                                {256, 3, std::uint64_t(r)});
+        const tests::TabulatedIons direct(d, s, caster, {source},
+                                          {{0, {SquareRootLaw{1, 0}, FlatAngle{}, 1}}},
+                                          {256, 3, std::uint64_t(r)});
         const ReflectedIons reflected = trace_reflected(d, s, caster, material, direct, laws,
                                                         {8192, 3, std::uint64_t(r), false});
         lost += reflected.lost_share;
@@ -245,8 +246,9 @@ TEST_CASE("reflected ions in a round hole against forward walks", "[revolved][re
         for (std::size_t e = 0; e < s.size(); ++e) {
             if (bin[e] < 0) continue;
             area[bin[e]] += s.area[e];
-            for (const auto& batch : reflected.value)
-                sum[bin[e]] += s.area[e] * batch[e] / batches;
+            for (int b = 0; b < batches; ++b)
+                sum[bin[e]] +=
+                    s.area[e] * tests::reflected_tally(reflected, b, 0, int(e)) / batches;
         }
         for (int b = 0; b < bins; ++b)
             value[b].push_back(sum[b] / area[b]);
@@ -326,9 +328,11 @@ TEST_CASE("ions in a round hole: same bits for any number of threads", "[revolve
         const geometry::RayCaster caster(d, s, 5);
         const auto reflected = trace_reflected(d, s, caster, std::vector<int>(s.size(), 0),
                                                one.ions, {IonReflection{}}, {512, 3, 0});
-        std::vector<double> all = reflected.value[3];
-        for (std::size_t e = 0; e < s.size(); ++e)
+        std::vector<double> all;
+        for (std::size_t e = 0; e < s.size(); ++e) {
+            all.push_back(tests::reflected_tally(reflected, 3, 0, int(e)));
             all.push_back(one.ions.tally_at(0, int(e), -1.3));
+        }
         return all;
     };
     const auto one = run(1);

@@ -6,6 +6,7 @@
 #include "fluxes/direct_ions.hpp"
 #include "tests/support/shapes.hpp"
 #include "tests/support/statistics.hpp"
+#include "tests/support/tabulated_ions.hpp"
 
 #include <cmath>
 #include <vector>
@@ -20,7 +21,7 @@ inline const fluxes::YieldFunction per_ion{fluxes::ConstantLaw{1.0}, fluxes::Fla
 /// One ion species of 40 amu gathered on a surface; tally 0 is `yield`.
 struct OneIon {
     geometry::RayCaster caster;
-    fluxes::DirectIons ions;
+    TabulatedIons ions;
     OneIon(const Domain& d, const Surface& s, const fluxes::IonDistribution& law, double flux = 1,
            const fluxes::YieldFunction& yield = per_ion,
            const fluxes::DirectIons::Options& options = {})

@@ -2,6 +2,7 @@
 #include "fluxes/direct_ions.hpp"
 #include "tests/geometry/etch_loop.hpp"
 #include "tests/support/run_quietly.hpp"
+#include "tests/support/tabulated_ions.hpp"
 
 #include <catch2/catch.hpp>
 
@@ -210,7 +211,7 @@ struct MovingWalls {
 
     WallErrors errors(double sigma) const {
         const geometry::RayCaster caster(domain, surface, top() + 4);
-        const fluxes::DirectIons ions(
+        const tests::TabulatedIons ions(
             domain, surface, caster,
             {{"X+", 40, 1.0, fluxes::IonDistribution::gaussian(100, sigma)}}, {}, {});
         return compare_wall(
