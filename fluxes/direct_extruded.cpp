@@ -32,17 +32,20 @@ public:
                 flux_[s][e] =
                     tables_.ions()[s].flux * sky_.flux(tables_.in_plane(static_cast<int>(s)), e);
         });
-        for (std::size_t s = 0; s < ions; ++s) {
-            places_.push_back(places(s));
-            flux_row_.push_back(averaged_rows(tables_.flux_tally(static_cast<int>(s)), places_[s]));
-            std::vector<double> own(count);
+        // Side by side as well as element by element: single loops over a contour are short.
+        places_.resize(ions);
+        flux_row_.resize(ions);
+        own_flux_.assign(ions, std::vector<double>(count));
+        tbb::parallel_for(std::size_t(0), ions, [&](std::size_t s) {
+            places_[s] = places(s);
+            flux_row_[s] = averaged_rows(tables_.flux_tally(static_cast<int>(s)), places_[s]);
             over_elements([&](int e) {
-                own[e] = on_row(&flux_row_[s][e * tables_.angles().size()], own_angle(e));
+                own_flux_[s][e] = on_row(&flux_row_[s][e * tables_.angles().size()], own_angle(e));
             });
-            own_flux_.push_back(std::move(own));
-        }
-        for (std::size_t m = 0; m < tables_.tallies().size(); ++m)
-            tabulate(static_cast<int>(m));
+        });
+        row_.resize(tables_.tallies().size());
+        tbb::parallel_for(std::size_t(0), row_.size(),
+                          [&](std::size_t m) { tabulate(static_cast<int>(m)); });
         over_elements([&](int e) { sum_own(e); });
     }
 
@@ -119,7 +122,7 @@ private:
     void tabulate(int m) {
         const std::size_t angles = tables_.angles().size();
         const int ion = tables_.tallies()[m].ion;
-        row_.push_back(averaged_rows(m, places_[ion]));
+        row_[m] = averaged_rows(m, places_[ion]);
         over_elements([&](int e) {
             float* row = &row_[m][e * angles];
             const float* flux = &flux_row_[ion][e * angles];

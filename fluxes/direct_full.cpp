@@ -21,7 +21,7 @@ using Nodes = RowKernels::Nodes;
 using Selection = RowKernels::Selection;
 
 constexpr std::uint64_t stream = 0x64697265637400ULL; ///< keeps keys apart from other samplings
-constexpr int chunk_elements = 512;                   ///< whose rows are held at once
+constexpr int chunk_elements = 1024;                  ///< whose rows are held at once
 
 /// Some materials of a run; two that share a bit are taken together.
 using Materials = std::uint64_t;

@@ -92,11 +92,11 @@ std::vector<Ring> rings_of(const IonHistogram& law, InPlane& plane) {
     constexpr int energies_per_bin = 8;
     std::vector<Ring> rings;
     for (std::size_t a = 0; a + 1 < law.cosine.size(); ++a) {
-        const double column = law.angle_cdf[a + 1] - law.angle_cdf[a];
+        const double column = law.angle_cdf.value[a + 1] - law.angle_cdf.value[a];
         if (!(column > 0)) continue;
         std::vector<InPlane::EnergyShare> spectrum;
         for (std::size_t e = 0; e + 1 < law.energy.size(); ++e) {
-            const double share = law.energy_cdf[a][e + 1] - law.energy_cdf[a][e];
+            const double share = law.energy_cdf[a].value[e + 1] - law.energy_cdf[a].value[e];
             if (!(share > 0)) continue;
             const double width = law.energy[e + 1] - law.energy[e];
             for (int i = 0; i < energies_per_bin; ++i)

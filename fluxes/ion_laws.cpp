@@ -23,13 +23,25 @@ struct BinDraw {
     std::size_t bin;
     double part;
 };
-BinDraw draw(const std::vector<double>& cdf, double u) {
-    const auto above = std::upper_bound(cdf.begin(), cdf.end(), u);
-    std::size_t i = above == cdf.end() ? cdf.size() - 1 : std::size_t(above - cdf.begin());
+BinDraw bin_below(const std::vector<double>& cdf, std::size_t above, double u) {
+    std::size_t i = std::min(above, cdf.size() - 1);
     while (i > 1 && !(cdf[i] > cdf[i - 1]))
         --i;
     const double span = cdf[i] - cdf[i - 1];
     return {i - 1, span > 0 ? std::clamp((u - cdf[i - 1]) / span, 0.0, 1.0) : 0.5};
+}
+BinDraw draw(const std::vector<double>& cdf, double u) {
+    return bin_below(cdf, std::upper_bound(cdf.begin(), cdf.end(), u) - cdf.begin(), u);
+}
+/// The same, sooner found.
+BinDraw draw(const RunningSum& sum, double u) {
+    const auto step = static_cast<std::size_t>(u * sum.above.size());
+    std::size_t i = sum.above[std::min(step, sum.above.size() - 1)];
+    while (i > 0 && sum.value[i - 1] > u)
+        --i;
+    while (i < sum.value.size() && !(sum.value[i] > u))
+        ++i;
+    return bin_below(sum.value, i, u);
 }
 
 struct Sampler {
@@ -136,7 +148,7 @@ struct ShareWithin {
         for (std::size_t a = 0; a + 1 < law.cosine.size(); ++a) {
             const double upper = law.cosine[a], lower = law.cosine[a + 1];
             const double part = std::clamp((upper - c) / (upper - lower), 0.0, 1.0);
-            sum += part * (law.angle_cdf[a + 1] - law.angle_cdf[a]);
+            sum += part * (law.angle_cdf.value[a + 1] - law.angle_cdf.value[a]);
         }
         return sum;
     }
@@ -228,6 +240,13 @@ Vec3 Lean::turned(const Vec3& d) const {
     const double turned_along = along * cosine - d.z * sine;
     const double shift = turned_along - along;
     return {d.x + shift * towards_x, d.y + shift * towards_y, d.z * cosine + along * sine};
+}
+
+RunningSum::RunningSum(std::vector<double> running) : value(std::move(running)) {
+    const std::size_t steps = value.size();
+    for (std::size_t k = 0; k < steps; ++k)
+        above.push_back(static_cast<int>(
+            std::upper_bound(value.begin(), value.end(), double(k) / steps) - value.begin()));
 }
 
 IonSample sample_law(const IonLaw& law, const std::array<double, 4>& u) {

@@ -12,15 +12,23 @@
 
 namespace rille::fluxes {
 
+/// A running sum from 0 to 1 with, for even steps of it, the first entry above.
+struct RunningSum {
+    std::vector<double> value;
+    std::vector<int> above; ///< index of the first value above k / above.size()
+
+    RunningSum() = default;
+    explicit RunningSum(std::vector<double> running);
+};
 struct ThermalFall {
     double drop_ev, transverse_ev, normal_ev;
 };
 struct IonHistogram {
-    std::vector<double> energy;                  ///< edges [eV]
-    std::vector<double> cosine;                  ///< edges, decreasing from the surface normal
-    std::vector<std::vector<double>> weight;     ///< [energy bin][angle bin], sum 1
-    std::vector<double> angle_cdf;               ///< at the angle edges
-    std::vector<std::vector<double>> energy_cdf; ///< [angle bin] at the energy edges
+    std::vector<double> energy;              ///< edges [eV]
+    std::vector<double> cosine;              ///< edges, decreasing from the surface normal
+    std::vector<std::vector<double>> weight; ///< [energy bin][angle bin], sum 1
+    RunningSum angle_cdf;                    ///< at the angle edges
+    std::vector<RunningSum> energy_cdf;      ///< [angle bin] at the energy edges
 };
 struct IonBeam {
     double energy_ev;

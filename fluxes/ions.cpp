@@ -95,20 +95,21 @@ IonDistribution IonDistribution::histogram(std::vector<double> energy_edges_ev,
     for (double a : angle_edges_deg)
         law.cosine.push_back(std::cos(a * degree));
     if (angle_edges_deg.back() == 90) law.cosine.back() = 0;
-    law.angle_cdf.assign(1, 0.0);
+    std::vector<double> angle_cdf(1, 0.0);
     for (std::size_t a = 0; a < bins; ++a) {
         std::vector<double> cdf(1, 0.0);
         for (auto& row : weight)
             cdf.push_back(cdf.back() + (row[a] /= sum));
         const double column = cdf.back();
-        law.angle_cdf.push_back(law.angle_cdf.back() + column);
+        angle_cdf.push_back(angle_cdf.back() + column);
         if (column > 0)
             for (double& c : cdf)
                 c /= column;
-        law.energy_cdf.push_back(std::move(cdf));
+        law.energy_cdf.emplace_back(std::move(cdf));
     }
-    for (double& c : law.angle_cdf)
-        c /= law.angle_cdf.back();
+    for (double& c : angle_cdf)
+        c /= angle_cdf.back();
+    law.angle_cdf = RunningSum(std::move(angle_cdf));
     law.energy = std::move(energy_edges_ev);
     law.weight = std::move(weight);
     return IonDistribution(std::make_shared<Impl>(IonLaw(std::move(law))));

@@ -41,8 +41,8 @@ Timed run_on(int threads, const engine::Case& the_case) {
 int main() {
     geometry::keep_freed_memory(); // as the program does
     const engine::Case the_case =
-        example("poly-trench", {"spacing=1 nm", "recipe.steps.main.no_longer_than=12 s",
-                                "recipe.steps.over.time=1 s"});
+        example("poly-trench", {"spacing=1 nm", "recipe.steps.main.no_longer_than=1.5 s",
+                                "recipe.steps.over.time=0.25 s"});
     constexpr int pairs = 3;
     std::vector<double> ratio, cost, one_s, two_s;
     bool same = true;
