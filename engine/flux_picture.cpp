@@ -153,20 +153,7 @@ AxisScale share_scale(const std::vector<Line>& lines) {
 }
 
 View section_view(const Case& c, const Section& section) {
-    View v;
-    v.x_min = c.domain.revolved() ? -c.domain.x_max() : c.domain.x_min();
-    v.x_max = c.domain.x_max();
-    double low = 0, high = 0;
-    for (const SectionLine& line : section)
-        for (const auto& point : line.points) {
-            low = std::min(low, point[1]);
-            high = std::max(high, point[1]);
-        }
-    const double extent = std::max(high - low, 0.2 * (v.x_max - v.x_min));
-    v.z_low = low - 0.14 * extent;
-    v.z_high = high + 0.06 * extent;
-    v.scale_x = v.scale_z =
-        std::min(section_height / (v.z_high - v.z_low), section_width / (v.x_max - v.x_min));
+    View v = view_of(c, section, 0.14, 0.06, section_width, section_height);
     const double stretch = std::floor(section_width / v.width());
     if (v.width() < 0.4 * section_width) v.scale_x *= stretch;
     v.left = margin + axis_room;

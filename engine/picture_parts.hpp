@@ -28,6 +28,10 @@ struct View {
     std::array<double, 2> at(const std::array<double, 2>& p) const { return {x(p[0]), y(p[1])}; }
 };
 
+/// One period across (revolved: both sides of the axis) and the section's heights with these shares
+/// of them below and above; no larger than `width` by `height` [px], at one scale.
+View view_of(const Case&, const Section&, double below, double above, double width, double height);
+
 /// What all parts of the picture share.
 struct PictureContext {
     const Case& c;

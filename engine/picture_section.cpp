@@ -183,6 +183,24 @@ void draw_angle_labels(Svg& svg, const View& v, const PictureContext& p,
 
 } // namespace
 
+View view_of(const Case& c, const Section& section, double below, double above, double width,
+             double height) {
+    View v;
+    v.x_min = c.domain.revolved() ? -c.domain.x_max() : c.domain.x_min();
+    v.x_max = c.domain.x_max();
+    double low = 0, high = 0;
+    for (const SectionLine& line : section)
+        for (const auto& point : line.points) {
+            low = std::min(low, point[1]);
+            high = std::max(high, point[1]);
+        }
+    const double extent = std::max(high - low, 0.2 * (v.x_max - v.x_min));
+    v.z_low = low - below * extent;
+    v.z_high = high + above * extent;
+    v.scale_x = v.scale_z = std::min(height / (v.z_high - v.z_low), width / (v.x_max - v.x_min));
+    return v;
+}
+
 std::string solid_path(const View& v, const Section& section) {
     std::string data;
     const double middle = 0.5 * (v.x_min + v.x_max), deep = v.z_low - (v.z_high - v.z_low);

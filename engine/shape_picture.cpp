@@ -71,19 +71,7 @@ AxisScale common_scale(std::initializer_list<const Bands*> all) {
 }
 
 View feature_view(const Case& c, const Section& section) {
-    View v;
-    v.x_min = c.domain.revolved() ? -c.domain.x_max() : c.domain.x_min();
-    v.x_max = c.domain.x_max();
-    double low = 0, high = 0;
-    for (const SectionLine& line : section)
-        for (const auto& point : line.points) {
-            low = std::min(low, point[1]);
-            high = std::max(high, point[1]);
-        }
-    const double extent = std::max(high - low, 0.2 * (v.x_max - v.x_min));
-    v.z_low = low - 0.08 * extent;
-    v.z_high = high + 0.05 * extent;
-    v.scale_x = v.scale_z = std::min(tallest / (v.z_high - v.z_low), widest / (v.x_max - v.x_min));
+    View v = view_of(c, section, 0.08, 0.05, widest, tallest);
     if (v.width() < 0.7 * narrowest) v.scale_x *= std::ceil(narrowest / v.width() - 1e-9);
     v.left = margin + axis_room + wall_width + 24;
     v.top = head;
