@@ -29,18 +29,9 @@ public:
     }
 
     /// Etched volume over the area of the opening, from the mouth down.
-    double mean_depth() const {
-        double sum = 0, all = 0;
-        for (std::size_t i = 0; i + 1 < radius_.size(); ++i) {
-            const double r0 = radius_[i], r1 = radius_[i + 1];
-            if (shape_ == Shape::trench)
-                sum += (r1 - r0) * (depth_[i] + depth_[i + 1]) / 2, all += r1 - r0;
-            else // a frustum's exact moment of r
-                sum += (r1 - r0) * (depth_[i] * (2 * r0 + r1) + depth_[i + 1] * (r0 + 2 * r1)) / 6,
-                    all += (r1 * r1 - r0 * r0) / 2;
-        }
-        return sum / all;
-    }
+    double mean_depth() const { return mean(depth_); }
+    /// Mean speed of the floor now.
+    double rate() const { return mean(speeds()); }
 
     /// Time until the mean depth is `wanted`, in steps of at most `step` of depth (midpoint rule).
     double etch_to(double wanted, double step = 0.01) {
@@ -70,6 +61,20 @@ private:
         double r = 0, z = 0; ///< z down from the mouth
     };
 
+    /// Of what the markers hold, over the opening.
+    double mean(const std::vector<double>& value) const {
+        double sum = 0, all = 0;
+        for (std::size_t i = 0; i + 1 < radius_.size(); ++i) {
+            const double r0 = radius_[i], r1 = radius_[i + 1];
+            if (shape_ == Shape::trench)
+                sum += (r1 - r0) * (value[i] + value[i + 1]) / 2, all += r1 - r0;
+            else // a frustum's exact moment of r
+                sum += (r1 - r0) * (value[i] * (2 * r0 + r1) + value[i + 1] * (r0 + 2 * r1)) / 6,
+                    all += (r1 * r1 - r0 * r0) / 2;
+        }
+        return sum / all;
+    }
+
     void move(const std::vector<double>& start, const std::vector<double>& speed, double dt) {
         for (std::size_t i = 0; i < depth_.size(); ++i)
             depth_[i] = start[i] + speed[i] * dt;
@@ -81,7 +86,7 @@ private:
         for (std::size_t i = 0; i < radius_.size(); ++i)
             points.push_back({radius_[i], depth_[i]});
         const double edge = depth_.back();
-        const int count = 40; // finer towards both ends
+        const int count = 40 + static_cast<int>(24 * edge); // finer towards both ends
         for (int i = 1; i <= count; ++i)
             points.push_back(
                 {0.5, 0.5 * edge * (1 + std::cos(3.14159265358979323846 * i / count))});

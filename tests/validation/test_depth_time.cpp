@@ -94,7 +94,8 @@ TEST_CASE("a tracked free floor follows the depth-time law", "[validation][depth
     // Source: arde_depth_time.csv, computed (transmission of slots and tubes); the factors of the
     // trench computed with another front-tracking prototype; those of the hole come from here.
     // Tolerance: 0.1 % in a trench, 0.2 % at s_b 0.1 and 0.5; a hole's floor bows more, yet at s_b
-    // 0.1 by no more than 0.6 %. The law of half the sticking must fail.
+    // 0.1 by no more than 0.6 %. The law of half the sticking must fail. A flat floor that takes
+    // everything receives the transmission of its walls, 0.05 %.
     const auto law = read_keyed_table<1>("arde_depth_time.csv");
     const auto factor = [&](FreeFloor::Shape shape, double s_b, double aspect) {
         const auto& row = law.at({aspect});
@@ -109,6 +110,12 @@ TEST_CASE("a tracked free floor follows the depth-time law", "[validation][depth
     CHECK(factor(trench, 1, 5) == Approx(0.989).epsilon(1e-3));
     CHECK(factor(hole, 0.1, 1) == Approx(1).epsilon(6e-3));
     CHECK(factor(hole, 0.1, 5) == Approx(1).epsilon(6e-3));
+    for (const double aspect : {1.0, 2.0, 5.0}) {
+        CHECK(FreeFloor(hole, 1, 1e9, aspect).rate() ==
+              Approx(law.at({aspect}).at("W_cyl")).epsilon(5e-4));
+        CHECK(FreeFloor(trench, 1, 1e9, aspect).rate() ==
+              Approx(law.at({aspect}).at("W_trench")).epsilon(5e-4));
+    }
     const double bent = law.at({5.0}).at("G_trench");
     CHECK_FALSE(factor(trench, 1, 5) * (5 + bent) / (5 + 0.5 * bent) ==
                 Approx(0.989).epsilon(1e-3));
