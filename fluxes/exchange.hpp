@@ -29,7 +29,8 @@ namespace rille::fluxes {
 ///
 /// What comes out of solve() is not linear in the rows, so that their noise leaves a bias of second
 /// order: at the floor of a round hole of aspect ratio 20 (s_w 0.01, s_b 0.1) -0.4 % with 64 rays,
-/// -0.2 % with 128, -0.1 % with 256 (measured, +- 0.1 %). It does not average out over refreshes.
+/// -0.2 % with 128, -0.1 % with 256 (measured, one standard error 0.13 %). It does not average out
+/// over refreshes.
 ///
 /// The batches are independent of each other: each has its own scramble of launch points and
 /// directions. Elements without any path to the open (closed voids) receive nothing.

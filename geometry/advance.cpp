@@ -296,7 +296,8 @@ AdvanceReport Advance::run() {
         if (!std::isfinite(most.waves)) throw NumericsError("a rate at the front is not finite");
         double dt = choose_step(most);
         for (double waves; (waves = second_stage(dt)) * dt > most_share * h_;) {
-            first_stage();
+            if (!std::isfinite(waves)) throw NumericsError("a rate at the front is not finite");
+            first_stage(); // finds the slopes again that second_stage has overwritten
             dt = limits_.max_share * h_ / waves;
         }
         const bool last = dt >= limits_.time - report_.time;

@@ -76,8 +76,8 @@ TEST_CASE("causes of shape: a twentieth less of one mechanism", "[validation][ca
 // neutrals, which the floor hardly needs, are half of what has moved the walls or more.
 // Source: derived here.
 // Tolerance: what no cause explains is, in the median over places, below 10 % of the way of the
-// walls and 3 % of that of the floor, which is resolved in 4 cells and more; the account without
-// neutrals must miss the walls.
+// walls (where they have moved a tenth of a cell) and 3 % of that of the floor (4 cells); the
+// account without neutrals must miss the walls.
 TEST_CASE("causes of shape: round holes, revolved and in full", "[validation][causes]") {
     using geometry::Symmetry;
     for (const auto symmetry : {Symmetry::revolved, Symmetry::full}) {
