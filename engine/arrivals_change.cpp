@@ -52,7 +52,9 @@ double arrivals_change(const geometry::Domain& domain, const geometry::Surface& 
         const double before = rate_at(now.rates, row, angle);
         double after = rate_at(later.rates, other, angle);
         const int beside = feet[e].partner < 0 ? -1 : later.rates.row(feet[e].partner, material);
-        if (beside >= 0) after += feet[e].share * (rate_at(later.rates, beside, angle) - after);
+        if (beside >= 0)
+            after =
+                geometry::value_between(after, rate_at(later.rates, beside, angle), feet[e].share);
         const double noise =
             9 * (variance(now.rate_batch, e) + variance(later.rate_batch, feet[e].element));
         const double own = surface.area[e] * std::fabs(before);

@@ -287,10 +287,10 @@ void Simulation::average_rates(fluxes::SurfaceStep& now, const fluxes::SurfaceSt
                 there.partner < 0 ? -1 : later.rates.row(there.partner, now.rates.material[r]);
             const double share = beside < 0 ? 0 : there.share;
             const double* near = &later.rates.table[other * angles];
-            const double* next = share > 0 ? &later.rates.table[beside * angles] : near;
+            const double* next = share != 0 ? &later.rates.table[beside * angles] : near;
             for (std::size_t k = 0; k < angles; ++k) {
                 double& rate = now.rates.table[r * angles + k];
-                rate = 0.5 * (rate + near[k] + share * (next[k] - near[k]));
+                rate = 0.5 * (rate + geometry::value_between(near[k], next[k], share));
             }
         }
         for (std::size_t b = 0; b < now.rate_batch.size(); ++b)

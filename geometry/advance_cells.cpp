@@ -133,9 +133,9 @@ bool Advance::in_fan(std::size_t c) const {
     return at.corner && -at.inward.dot(surface_.normal[element_[c]]) < fan_cosine;
 }
 
-/// Takes in the row that the neighbour has for the same material.
+/// Takes in the row that the neighbour has for the same material, between their centres.
 void Advance::blend(RowPair& rows, const BetweenCentres& place) const {
-    if (rows.row < 0 || place.partner < 0) return;
+    if (rows.row < 0 || place.partner < 0 || place.share < 0) return;
     rows.other = rates_.row(place.partner, rates_.material[rows.row]);
     rows.share = rows.other < 0 ? 0 : place.share;
 }

@@ -20,10 +20,15 @@ BetweenCentres between_centres(const Domain& domain, const Surface& s, int eleme
     if (!(length > 0)) return place;
     const double ahead =
         std::clamp((foot - s.centre[element]).dot(along) / length, -0.5 * length, 0.5 * length);
-    const int partner = ahead > 0 ? s.next[element] : s.previous[element];
-    if (partner < 0 || s.normal[element].dot(s.normal[partner]) < smooth_cosine) return place;
-    place.partner = partner;
-    place.share = std::fabs(ahead) / (0.5 * (length + s.length(partner)));
+    const auto smooth = [&](int partner) {
+        return partner >= 0 && s.normal[element].dot(s.normal[partner]) >= smooth_cosine;
+    };
+    const int onwards = ahead > 0 ? s.next[element] : s.previous[element];
+    const int behind = ahead > 0 ? s.previous[element] : s.next[element];
+    place.partner = smooth(onwards) ? onwards : smooth(behind) ? behind : -1;
+    if (place.partner < 0) return place;
+    place.share = std::fabs(ahead) / (0.5 * (length + s.length(place.partner)));
+    if (place.partner != onwards) place.share = -place.share;
     return place;
 }
 
