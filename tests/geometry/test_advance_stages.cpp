@@ -143,14 +143,16 @@ TEST_CASE("A second stage far faster than the first does not throw phi", "[geome
     //   fast, a single one would do for all the time: phi changes by 3 cells (full: 17), the
     //   contour comes 4 cells too low and torn.
     const bool full = GENERATE(false, true);
+    const bool layered = GENERATE(false, true); // two films with the same rates
+    INFO((full ? "full" : "extruded") << (layered ? ", layered" : ""));
     const SteepFloor floor;
     const Domain d = cell(full, 80);
     Front front = floor.front(d);
     const Values before = values_of(front);
     const Surface s = extract_surface(front);
     const Loop loop = floor.loop(full);
-    const AdvanceReport report =
-        advance_once(front, make_rates(s, loop.angles, 1, loop.law), one_film());
+    const AdvanceReport report = advance_once(front, make_rates(s, loop.angles, 2, loop.law),
+                                              layered ? masked(floor.top) : one_film());
     CHECK(report.time == 0.5);
     CHECK(report.largest_move == Approx(0.5));
     CHECK(report.sub_steps > 50);
