@@ -133,9 +133,11 @@ double Advance::layered_change(const Slopes& s, const Layers& layers, bool fan, 
     waves = 0;
     for (int k = 0; k < layers.count; ++k) {
         Speed speed;
-        if (!(share[k] > 0 && layers.row[k].row >= 0)) continue;
-        sum += share[k] * change(s, layers.row[k], {}, fan, speed);
-        waves = std::max(waves, speed.waves);
+        if (share[k] <= 0 || layers.row[k].row < 0) continue; // NaN stays
+        const double part = change(s, layers.row[k], {}, fan, speed);
+        speed.smooth = false; // a film may end within the cell
+        sum += share[k] * part;
+        waves = std::max(waves, counted(part, speed));
     }
     return sum;
 }
@@ -169,9 +171,13 @@ void Advance::over_layered(const Body& body) {
     });
 }
 
-/// What smooth cells' speeds count, since twice the share will do there.
-double Advance::ease() const {
-    return limits_.max_share / std::min(2 * limits_.max_share, smooth_share);
+/// What the speed of waves of a cell counts for the length of a sub-step: less where phi is smooth,
+/// since twice the share will do there. Largest values pass over NaN, so a change that is not
+/// finite, of a rate that is not, counts as infinitely fast.
+double Advance::counted(double change, const Speed& speed) const {
+    if (!std::isfinite(change)) return std::numeric_limits<double>::infinity();
+    if (!speed.smooth) return speed.waves;
+    return limits_.max_share / std::min(2 * limits_.max_share, smooth_share) * speed.waves;
 }
 
 Speed Advance::first_stage() {
@@ -183,7 +189,7 @@ Speed Advance::first_stage() {
         std::fill(slope_.begin() + begin, slope_.begin() + end, 0.0);
         sweep(phi, begin, end, [&](std::size_t c, double change, const Speed& speed) {
             slope_[c] = change;
-            waves = std::max(waves, speed.smooth ? ease() * speed.waves : speed.waves);
+            waves = std::max(waves, counted(change, speed));
             if (std::fabs(phi[c]) < h_) fastest = std::max(fastest, std::fabs(speed.rate));
         });
         front[begin / 1024] = fastest;
@@ -227,7 +233,7 @@ double Advance::second_stage(double dt) {
         double waves = 0;
         sweep(next, begin, end, [&](std::size_t c, double second, const Speed& speed) {
             slope_[c] = 0.5 * (slope_[c] + second);
-            waves = std::max(waves, speed.smooth ? ease() * speed.waves : speed.waves);
+            waves = std::max(waves, counted(second, speed));
         });
         return waves;
     });

@@ -81,7 +81,7 @@ private:
     template <class Body>
     void over_layered(const Body& body);
     double layered_change(const Slopes&, const Layers&, bool fan, double dt, double& waves) const;
-    double ease() const;
+    double counted(double change, const Speed&) const;
     Speed first_stage();
     Speed find_layers(LayeredCell&) const; ///< its largest speeds
     double choose_step(const Speed&) const;

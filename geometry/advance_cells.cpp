@@ -264,8 +264,11 @@ Speed Advance::find_layers(LayeredCell& at) const {
     for (int k = 0; k < at.layers.count; ++k) {
         Speed speed;
         blend(at.layers.row[k], at.place);
-        if (at.layers.row[k].row >= 0) change(s, at.layers.row[k], {}, false, speed);
-        most.waves = std::max(most.waves, speed.waves);
+        if (at.layers.row[k].row >= 0) {
+            const double part = change(s, at.layers.row[k], {}, false, speed);
+            speed.smooth = false; // a film may end within the cell
+            most.waves = std::max(most.waves, counted(part, speed));
+        }
         if (std::fabs(phi[c]) < h_) most.rate = std::max(most.rate, std::fabs(speed.rate));
     }
     return most;
