@@ -269,7 +269,6 @@ void FullGather::visit_rows(const DirectIons::UseRows& use) const {
     const std::vector<int> order = spatial_order(surface_);
     const std::size_t angles = tables_.angles().size();
     std::vector<int> local(order.size(), -1), near;
-    std::vector<float> rows;
     for (std::size_t begin = 0; begin < order.size(); begin += chunk_elements) {
         const std::size_t end = std::min(order.size(), begin + chunk_elements);
         near.clear();
@@ -286,7 +285,7 @@ void FullGather::visit_rows(const DirectIons::UseRows& use) const {
         }
         const Selection selection = select(materials);
         const std::size_t size = selection.sums.size() * angles;
-        rows.resize(near.size() * size);
+        std::vector<float> rows(near.size() * size);
         using Range = tbb::blocked_range<std::size_t>;
         tbb::parallel_for(Range(0, near.size(), 16), [&](const Range& range) {
             std::vector<double> one(size);

@@ -79,10 +79,10 @@ struct IonArrivals {
     }
     /// Gives back what is kept at the elements' own normals, which rates over angles do not need.
     void forget_own_normals() {
-        by_path = {};
-        by_path_batch = {};
-        total = {};
-        batch = {};
+        by_path = std::vector<double>(); // {} would keep the memory
+        by_path_batch = std::vector<std::vector<double>>();
+        total = std::vector<double>();
+        batch = std::vector<std::vector<double>>();
     }
     bool by_fast_neutrals(int wanted) const { return wanted >= int(sums.members.size()); }
 };

@@ -32,8 +32,8 @@ public:
                 batch_.empty() ? nullptr : batch_.data() + std::size_t(first_[e]) * 8};
     }
     void forget_own() {
-        own_ = {};
-        batch_ = {};
+        own_ = std::vector<double>(); // {} would keep the memory
+        batch_ = std::vector<double>();
     }
     const std::shared_ptr<const ArcAverage>& average() const { return average_; }
     const std::vector<Vec3>& normal() const { return normal_; }
