@@ -19,7 +19,8 @@ constexpr double window_cells = 5;
 /// Elements in walking order without a corner between them.
 struct Piece {
     std::vector<int> elements;
-    bool ring = false; ///< the last joins the first
+    bool ring = false;                           ///< the last joins the first
+    bool from_mirror = false, to_mirror = false; ///< begins, ends at a mirror side
 };
 
 bool corner_between(const Surface& s, int e, int f, double angle = corner_angle) {
@@ -27,7 +28,8 @@ bool corner_between(const Surface& s, int e, int f, double angle = corner_angle)
 }
 
 /// Pieces of the contour without a corner of more than `angle` [rad].
-std::vector<Piece> smooth_pieces(const Surface& s, double angle) {
+std::vector<Piece> smooth_pieces(const Domain& domain, const Surface& s, double angle) {
+    const bool mirrors = domain.extruded() && domain.sides == geometry::Sides::mirror;
     const int count = static_cast<int>(s.size());
     std::vector<char> taken(count, 0);
     std::vector<Piece> pieces;
@@ -43,12 +45,15 @@ std::vector<Piece> smooth_pieces(const Surface& s, double angle) {
                 break;
             }
         }
-        Piece piece{{}, ring};
+        Piece piece;
+        piece.ring = ring;
         for (int e = start; e >= 0 && !taken[e]; e = s.next[e]) {
             if (e != start && corner_between(s, s.previous[e], e, angle)) break;
             taken[e] = 1;
             piece.elements.push_back(e);
         }
+        piece.from_mirror = mirrors && s.previous[piece.elements.front()] < 0;
+        piece.to_mirror = mirrors && s.next[piece.elements.back()] < 0;
         pieces.push_back(std::move(piece));
     }
     return pieces;
@@ -79,19 +84,23 @@ void add_piece(const Surface& surface, const Piece& piece, double window,
     if (all <= window || n == 1) { // shorter than the window: one average
         for (int e : piece.elements)
             for (int f : piece.elements)
-                rows[e].push_back({f, surface.length(f) / all});
+                rows[e].push_back({f, false, surface.length(f) / all});
         return;
     }
+    const auto of_image = [&](int i, int j, bool of_mirror) {
+        double w = 0;
+        if (!piece.ring && piece.from_mirror == of_mirror)
+            w += box_weight(s[i], s[i + 1], window, -s[j + 1], -s[j]);
+        if (!piece.ring && piece.to_mirror == of_mirror)
+            w += box_weight(s[i], s[i + 1], window, 2 * all - s[j + 1], 2 * all - s[j]);
+        return w;
+    };
     const auto weight = [&](int i, int j) {
         double w = 0;
         for (int k = -1; k <= 1; ++k)
             if (piece.ring || k == 0)
                 w += box_weight(s[i], s[i + 1], window, s[j] + k * all, s[j + 1] + k * all);
-        if (!piece.ring) {
-            w += box_weight(s[i], s[i + 1], window, -s[j + 1], -s[j]);
-            w += box_weight(s[i], s[i + 1], window, 2 * all - s[j + 1], 2 * all - s[j]);
-        }
-        return w;
+        return w + of_image(i, j, false);
     };
     const auto reaches = [&](int i, int j) {
         return std::min(std::fabs(s[i + 1] - s[j]), std::fabs(s[j + 1] - s[i])) < 0.6 * window;
@@ -114,10 +123,12 @@ void add_piece(const Surface& surface, const Piece& piece, double window,
         double sum = 0;
         auto& row = rows[piece.elements[i]];
         for (int j : near) {
-            const double w = weight(i, j);
-            if (w <= 0) continue;
-            row.push_back({piece.elements[j], w});
-            sum += w;
+            for (const bool image : {false, true}) {
+                const double w = image ? of_image(i, j, true) : weight(i, j);
+                if (w <= 0) continue;
+                row.push_back({piece.elements[j], image, w});
+                sum += w;
+            }
         }
         for (auto& part : row)
             part.weight /= sum;
@@ -188,12 +199,12 @@ ArcAverage average_over_surroundings(const Surface& surface) {
     average.parts.resize(average.first.back());
     over_surroundings(surface, at_vertex, [&](int e, const std::vector<int>& found) {
         ArcAverage::Part* parts = average.parts.data() + average.first[e];
-        parts[0] = {e, 1.0};
+        parts[0] = {e, false, 1.0};
         for (std::size_t i = 1; i < found.size(); ++i) {
             const int f = found[i];
             const double widest = std::max(area[e], area[f]);
             const double weight = widest > 0 ? surface.area[f] / widest : 0.0;
-            parts[i] = {f, weight};
+            parts[i] = {f, false, weight};
             parts[0].weight -= weight;
         }
     });
@@ -275,7 +286,7 @@ ArcAverage arc_average(const Domain& domain, const Surface& surface) {
     if (!domain.planar_contour()) return average_over_surroundings(surface);
     std::vector<std::vector<ArcAverage::Part>> rows(surface.size());
     const double angle = domain.revolved() ? 1.5 * corner_angle : corner_angle;
-    for (const Piece& piece : smooth_pieces(surface, angle))
+    for (const Piece& piece : smooth_pieces(domain, surface, angle))
         add_piece(surface, piece, window_cells * domain.spacing, rows);
     if (domain.revolved()) weigh_by_area(surface, rows);
     ArcAverage average;
@@ -291,8 +302,12 @@ std::vector<geometry::Vec3> averaged_normals(const Surface& surface, const ArcAv
     std::vector<geometry::Vec3> normals(surface.size());
     for (std::size_t e = 0; e < surface.size(); ++e) {
         geometry::Vec3 sum(0, 0, 0);
-        for (int i = average.first[e]; i < average.first[e + 1]; ++i)
-            sum += surface.normal[average.parts[i].element] * average.parts[i].weight;
+        for (int i = average.first[e]; i < average.first[e + 1]; ++i) {
+            const ArcAverage::Part& part = average.parts[i];
+            geometry::Vec3 normal = surface.normal[part.element];
+            if (part.image) normal.x = -normal.x;
+            sum += normal * part.weight;
+        }
         const double length = sum.length();
         normals[e] = length > 1e-12 ? sum / length : surface.normal[e];
     }

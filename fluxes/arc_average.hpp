@@ -11,13 +11,15 @@ namespace rille::fluxes {
 /// Averages over a few cells of surface that lose nothing and never reach across a corner.
 ///
 /// extruded: box of five cells of arc inside a smooth piece, reflected at the piece's ends, so that
-/// a constant stays constant and the sum of value times length is kept to round-off. revolved: the
+/// a constant stays constant and the sum of value times length is kept to round-off; at a mirror
+/// side what is reflected is the image, whose directions along x are turned over. revolved: the
 /// same with the sum of value times area, and weights that fade between normals 15 and 45 degrees
 /// apart in place of an edge to the piece at a corner. full: elements
 /// that share a corner, twice over, within the corner angle; sums of value times area are kept.
 struct ArcAverage {
     struct Part {
         int element;
+        bool image; ///< in a mirror side
         double weight;
     };
     std::vector<int> first;  ///< parts of element e: [first[e], first[e + 1])
@@ -27,6 +29,13 @@ struct ArcAverage {
         double sum = 0;
         for (int i = first[element]; i < first[element + 1]; ++i)
             sum += parts[i].weight * value[parts[i].element];
+        return sum;
+    }
+    /// Of a component along x.
+    double of_sideways(const std::vector<double>& value, int element) const {
+        double sum = 0;
+        for (int i = first[element]; i < first[element + 1]; ++i)
+            sum += (parts[i].image ? -1 : 1) * parts[i].weight * value[parts[i].element];
         return sum;
     }
 };

@@ -32,13 +32,16 @@ public:
                 flux_[s][e] =
                     tables_.ions()[s].flux * sky_.flux(tables_.in_plane(static_cast<int>(s)), e);
         });
+        choose_nodes();
         // Side by side as well as element by element: single loops over a contour are short.
         places_.resize(ions);
         flux_row_.resize(ions);
         own_flux_.assign(ions, std::vector<double>(count));
         tbb::parallel_for(std::size_t(0), ions, [&](std::size_t s) {
             places_[s] = places(s);
-            flux_row_[s] = averaged_rows(tables_.flux_tally(static_cast<int>(s)), places_[s]);
+            const std::vector<char> everywhere(count, 1);
+            flux_row_[s] =
+                averaged_rows(tables_.flux_tally(static_cast<int>(s)), places_[s], everywhere);
             over_elements([&](int e) {
                 own_flux_[s][e] = on_row(&flux_row_[s][e * tables_.angles().size()], own_angle(e));
             });
@@ -58,9 +61,9 @@ public:
             std::vector<double> rows(sums * angles, 0.0);
             for (std::size_t s = 0; s < sums; ++s)
                 for (const int m : wanted_.members[s])
-                    for (std::size_t k = 0; k < angles; ++k)
+                    for (int k = nodes_[e].first; k < nodes_[e].end; ++k)
                         rows[s * angles + k] += row_[m][e * angles + k];
-            use(e, {rows.data(), place.data(), angles});
+            use(e, {rows.data(), place.data(), angles, nodes_[e]});
         });
     }
 
@@ -90,29 +93,76 @@ private:
         return seen;
     }
 
-    /// Rows of one table: per element from its visible intervals, then averaged along the arc.
-    std::vector<float> averaged_rows(int table, const std::vector<std::vector<Seen>>& seen) const {
+    /// Calls work(f, whether its image is meant) for every f that the average at e takes from.
+    template <class Work>
+    void over_parts(int e, const Work& work) const {
+        for (int i = average_->first[e]; i < average_->first[e + 1]; ++i)
+            work(average_->parts[i].element, average_->parts[i].image);
+    }
+
+    /// Nodes of the wanted rows, and of those that their averages are made of (all for images,
+    /// which turn the angles over).
+    void choose_nodes() {
+        const int angles = static_cast<int>(tables_.angles().size());
+        nodes_ = wanted_.nodes;
+        if (nodes_.empty()) nodes_.assign(surface_.size(), {0, angles});
+        single_nodes_.assign(surface_.size(), {angles, 0});
+        for (std::size_t e = 0; e < nodes_.size(); ++e)
+            over_parts(static_cast<int>(e), [&](int f, bool image) {
+                const NodeRange nodes = image ? NodeRange{0, angles} : nodes_[e];
+                single_nodes_[f].first = std::min(single_nodes_[f].first, nodes.first);
+                single_nodes_[f].end = std::max(single_nodes_[f].end, nodes.end);
+            });
+    }
+
+    /// Per element, whether a material in its reach wants the tally.
+    std::vector<char> wanting(int tally) const {
+        std::vector<char> by_material;
+        for (const std::vector<int>& sums : wanted_.of_material)
+            by_material.push_back(std::any_of(sums.begin(), sums.end(), [&](int sum) {
+                const std::vector<int>& members = wanted_.members[sum];
+                return std::find(members.begin(), members.end(), tally) != members.end();
+            }));
+        std::vector<char> wants(surface_.size(), 0);
+        const MaterialsInReach& reach = *wanted_.reach;
+        for (std::size_t e = 0; e < wants.size(); ++e)
+            for (int i = reach.first[e]; i < reach.first[e + 1]; ++i)
+                wants[e] |= by_material[reach.material[i]];
+        return wants;
+    }
+
+    /// Rows of one table, where they are wanted: per element from its visible intervals, then
+    /// averaged along the arc.
+    std::vector<float> averaged_rows(int table, const std::vector<std::vector<Seen>>& seen,
+                                     const std::vector<char>& wants) const {
         const std::size_t count = surface_.size(), angles = tables_.angles().size();
-        std::vector<float> raw(count * angles);
+        std::vector<char> takes_part(count, 0);
+        for (std::size_t e = 0; e < count; ++e)
+            if (wants[e]) over_parts(static_cast<int>(e), [&](int f, bool) { takes_part[f] = 1; });
+        std::vector<float> single(count * angles);
         over_elements([&](int e) {
+            if (!takes_part[e]) return;
+            const auto [first, end] = single_nodes_[e];
             std::vector<double> row(angles, 0.0);
             for (const Seen& s : seen[e]) {
-                tables_.add(table, s.high, 1.0 / gauss.size(), row.data());
-                tables_.add(table, s.low, -1.0 / gauss.size(), row.data());
+                tables_.add(table, s.high, 1.0 / gauss.size(), first, end, row.data());
+                tables_.add(table, s.low, -1.0 / gauss.size(), first, end, row.data());
             }
-            for (std::size_t k = 0; k < angles; ++k)
-                raw[e * angles + k] = static_cast<float>(std::max(0.0, row[k]));
+            for (int k = first; k < end; ++k)
+                single[e * angles + k] = static_cast<float>(std::max(0.0, row[k]));
         });
         std::vector<float> rows(count * angles);
         over_elements([&](int e) {
+            if (!wants[e]) return;
+            const auto [first, end] = nodes_[e];
             std::vector<double> row(angles, 0.0);
             for (int i = average_->first[e]; i < average_->first[e + 1]; ++i) {
-                const float* part = &raw[average_->parts[i].element * angles];
-                const double weight = average_->parts[i].weight;
-                for (std::size_t k = 0; k < angles; ++k)
-                    row[k] += weight * part[k];
+                const auto& [element, image, weight] = average_->parts[i];
+                const float* part = &single[element * angles];
+                for (int k = first; k < end; ++k)
+                    row[k] += weight * (image ? on_row(part, -tables_.angles()[k]) : part[k]);
             }
-            for (std::size_t k = 0; k < angles; ++k)
+            for (int k = first; k < end; ++k)
                 rows[e * angles + k] = static_cast<float>(row[k]);
         });
         return rows;
@@ -122,13 +172,15 @@ private:
     void tabulate(int m) {
         const std::size_t angles = tables_.angles().size();
         const int ion = tables_.tallies()[m].ion;
-        row_[m] = averaged_rows(m, places_[ion]);
+        const std::vector<char> wants = wanting(m);
+        row_[m] = averaged_rows(m, places_[ion], wants);
         over_elements([&](int e) {
+            if (!wants[e]) return;
             float* row = &row_[m][e * angles];
             const float* flux = &flux_row_[ion][e * angles];
             const double own = own_flux_[ion][e];
             const double missing = average_->of(flux_[ion], e) - own;
-            for (std::size_t k = 0; k < angles; ++k)
+            for (int k = nodes_[e].first; k < nodes_[e].end; ++k)
                 row[k] = static_cast<float>(row[k] * correction(missing, own, flux[k]));
         });
     }
@@ -156,6 +208,8 @@ private:
     const IonTables& tables_;
     const WantedSums& wanted_;
     OpenSky sky_;
+    std::vector<NodeRange> nodes_;        ///< per element, of its rows
+    std::vector<NodeRange> single_nodes_; ///< likewise, of what averages take from it
     std::vector<std::vector<Visible>> seen_;
     std::vector<std::vector<std::vector<Seen>>> places_; ///< [ion][e]
     std::vector<std::vector<double>> flux_;              ///< [ion][e]

@@ -304,7 +304,7 @@ void FullGather::visit_rows(const DirectIons::UseRows& use) const {
                     for (std::size_t k = 0; k < size; ++k)
                         mean[k] += weight * from[k];
                 });
-                use(order[i], {mean.data(), selection.place.data(), angles});
+                use(order[i], {mean.data(), selection.place.data(), angles, {0, int(angles)}});
             }
         });
         for (const int f : near)

@@ -18,11 +18,18 @@
 
 namespace rille::fluxes {
 
+/// Nodes [first, end) of the angles at which rates are tabulated.
+struct NodeRange {
+    int first, end;
+};
+
 /// Which sums of tallies are wanted of the ions, and where.
 struct WantedSums {
     std::vector<std::vector<int>> members;     ///< [sum]: tallies of the ion tables
     std::vector<std::vector<int>> of_material; ///< [material]: sums wanted there
     const MaterialsInReach* reach = nullptr;   ///< outlives what is gathered
+    /// Per element, the angles that its normal may turn to; empty: all.
+    std::vector<NodeRange> nodes = {};
 
     /// Those of the outermost material of an element.
     const std::vector<int>& of(int element) const { return of_material[reach->outermost(element)]; }
@@ -64,11 +71,12 @@ public:
     const WantedSums& wanted() const { return wanted_; }
 
     /// The sums with the element's normal turned to rate_angles()[k]: row(sum)[k], for the sums of
-    /// every material in reach.
+    /// every material in reach; only at the wanted nodes.
     struct Rows {
         const double* first;
         const int* place;
         std::size_t angles;
+        NodeRange nodes;
         const double* row(int sum) const { return first + place[sum] * angles; }
     };
     using UseRows = std::function<void(int element, const Rows&)>;

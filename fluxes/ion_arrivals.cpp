@@ -1,6 +1,8 @@
 // SPDX-License-Identifier: Apache-2.0
 #include "fluxes/ion_arrivals.hpp"
 
+#include "geometry/normals_nearby.hpp"
+
 #include <algorithm>
 #include <numeric>
 
@@ -56,6 +58,22 @@ WantedSums wanted_sums(const Setting& s, const AllSources& all, IonArrivals& ion
         ions.adds_to.push_back(sum);
     }
     return wanted;
+}
+
+/// Nodes of the angles at which the front may ask for rates of an element: those of the normals
+/// about it and a right angle to either side. The front looks no further than its band.
+std::vector<NodeRange> askable(const Setting& s, const std::vector<double>& angles) {
+    constexpr double reach_cells = 8, margin = 0.5 * 3.14159265358979323846;
+    std::vector<NodeRange> nodes;
+    const int last = static_cast<int>(angles.size()) - 1;
+    for (const auto& near :
+         geometry::normals_nearby(s.domain, s.surface, reach_cells * s.domain.spacing)) {
+        const auto above = std::upper_bound(angles.begin(), angles.end(), near.low - margin);
+        const auto below = std::lower_bound(angles.begin(), angles.end(), near.high + margin);
+        nodes.push_back({std::max(0, static_cast<int>(above - angles.begin()) - 1),
+                         std::min(last, static_cast<int>(below - angles.begin())) + 1});
+    }
+    return nodes;
 }
 
 /// Everything that comes to element e, by path and together.
@@ -118,6 +136,7 @@ IonArrivals gather_ions(const Setting& s, const std::vector<IonReflection>& refl
     else
         ions.tables = std::make_shared<IonTables>(s.domain.symmetry, std::move(all.ions),
                                                   std::move(all.tallies));
+    if (s.domain.extruded()) wanted.nodes = askable(s, ions.tables->angles());
     ions.direct = std::make_unique<DirectIons>(
         s.domain, s.surface, s.caster, ions.tables, std::move(wanted),
         DirectIons::Options{sampling.ion_directions, sampling.seed, sampling.refresh});

@@ -199,12 +199,13 @@ std::vector<double> IonTables::tabulate(const Tally& t) const {
     return table;
 }
 
-void IonTables::add(int tally, const InPlane::Place& place, double factor, double* row) const {
+void IonTables::add(int tally, const InPlane::Place& place, double factor, std::size_t first,
+                    std::size_t end, double* row) const {
     const std::size_t count = angles_.size();
     const double* low = table_[tally].data() + place.bin * count;
     const double* high = low + count;
     const double a = factor * (1 - place.part), b = factor * place.part;
-    for (std::size_t k = 0; k < count; ++k)
+    for (std::size_t k = first; k < end; ++k)
         row[k] += a * low[k] + b * high[k];
 }
 

@@ -34,8 +34,9 @@ public:
 
     /// Table of the flux itself (yield 1) of one ion species, for add().
     int flux_tally(int ion) const { return static_cast<int>(tallies_.size()) + ion; }
-    /// row[k] += factor * T_m(angles()[k], place). extruded only.
-    void add(int tally, const InPlane::Place&, double factor, double* row) const;
+    /// row[k] += factor * T_m(angles()[k], place) for first <= k < end. extruded only.
+    void add(int tally, const InPlane::Place&, double factor, std::size_t first, std::size_t end,
+             double* row) const;
     const InPlane& in_plane(int ion) const { return ions_[ion].distribution.in_plane(); }
     const PlaneTable& plane_table(int ion) const { return plane_[ion]; } ///< extruded only
 

@@ -103,11 +103,13 @@ void tabulate(const Setting& s, const IonArrivals& ions, int e, const DirectIons
             left[a] = share_after_turn(turned, ions.reflected.from_angle[e], rates.angles[a]);
     }
     const auto neutrals = at_element(step.neutral, e);
+    const NodeRange nodes = rows ? rows->nodes : NodeRange{0, static_cast<int>(angles)};
     std::vector<double> tallies(ions.tallies), last;
     for (int row = rates.first_row[e]; row < rates.first_row[e + 1]; ++row) {
         const int material = rates.material[row];
         const std::vector<int>& acting = ions.sums.of_material[material];
-        for (std::size_t a = 0; a < angles; ++a) {
+        double* value = rates.table.data() + std::size_t(row) * angles;
+        for (int a = nodes.first; a < nodes.end; ++a) {
             for (std::size_t i = 0; i < acting.size(); ++i)
                 tallies[i] = left[a] * bounced[acting[i]];
             for (std::size_t i = 0; rows && i < acting.size(); ++i)
@@ -115,13 +117,14 @@ void tabulate(const Setting& s, const IonArrivals& ions, int e, const DirectIons
             for (std::size_t t = sums; rows && t < ions.adds_to.size(); ++t)
                 for (std::size_t i = 0; i < acting.size(); ++i)
                     if (acting[i] == ions.adds_to[t]) tallies[i] += rows->row(int(t))[a];
-            double* value = rates.table.data() + std::size_t(row) * angles + a;
             // The same when turned away from every ion, or without ions.
-            *value = a > 0 && tallies == last
-                         ? value[-1]
-                         : respond_at(s, ions, material, tallies.data(), neutrals.data()).rate;
+            value[a] = a > nodes.first && tallies == last
+                           ? value[a - 1]
+                           : respond_at(s, ions, material, tallies.data(), neutrals.data()).rate;
             last = tallies;
         }
+        std::fill(value, value + nodes.first, value[nodes.first]);
+        std::fill(value + nodes.end, value + angles, value[nodes.end - 1]);
     }
 }
 

@@ -64,7 +64,7 @@ double farthest(const IonDistribution& ions, const YieldFunction& yield,
         const std::vector<double> sums = plain.at_edges(tables.angles()[k]);
         for (std::size_t b = 1; b < sums.size(); ++b) {
             std::vector<double> row(tables.angles().size(), 0.0);
-            tables.add(0, {static_cast<int>(b) - 1, 1}, 1, row.data());
+            tables.add(0, {static_cast<int>(b) - 1, 1}, 1, 0, row.size(), row.data());
             worst =
                 std::max(worst, std::fabs(row[k] - sums[b]) / std::max(sums.back(), 0.01 * floor));
         }
