@@ -81,10 +81,14 @@ void add_piece(const Surface& surface, const Piece& piece, double window,
     for (int i = 0; i < n; ++i)
         s[i + 1] = s[i] + surface.length(piece.elements[i]);
     const double all = s[n];
-    if (all <= window || n == 1) { // shorter than the window: one average
+    const bool halved = piece.from_mirror || piece.to_mirror; // the rest is its image
+    if ((halved ? 2 : 1) * all <= window || (n == 1 && !halved)) {
+        // Shorter than the window: one average.
         for (int e : piece.elements)
             for (int f : piece.elements)
-                rows[e].push_back({f, false, surface.length(f) / all});
+                for (const bool image : {false, true})
+                    if (halved || !image)
+                        rows[e].push_back({f, image, surface.length(f) / all / (halved ? 2 : 1)});
         return;
     }
     const auto of_image = [&](int i, int j, bool of_mirror) {
