@@ -61,7 +61,9 @@ WantedSums wanted_sums(const Setting& s, const AllSources& all, IonArrivals& ion
 }
 
 /// Nodes of the angles at which the front may ask for rates of an element: those of the normals
-/// about it and a right angle to either side. The front looks no further than its band.
+/// about it and a right angle to either side. The front looks no further than its band;
+/// cells at the edge of that, whose slopes mean nothing, may ask beyond and get the last value
+/// held.
 std::vector<NodeRange> askable(const Setting& s, const std::vector<double>& angles) {
     constexpr double reach_cells = 8, margin = 0.5 * 3.14159265358979323846;
     std::vector<NodeRange> nodes;

@@ -88,7 +88,7 @@ TEST_CASE("half a shape between mirrors receives what the whole one does", "[dir
 }
 
 TEST_CASE("normals nearby", "[direct]") {
-    // Oracle: the slope of the valley, psi = -atan(z'), is steepest where x is a quarter period.
+    // Oracle: every pair of elements compared, and the definition beside the sides.
     Domain d;
     const Surface s = valley(d, false);
     const auto range = geometry::normals_nearby(d, s, 4);
