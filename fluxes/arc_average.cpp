@@ -19,12 +19,19 @@ constexpr double window_cells = 5;
 /// Elements in walking order without a corner between them.
 struct Piece {
     std::vector<int> elements;
-    bool ring = false;                           ///< the last joins the first
-    bool from_mirror = false, to_mirror = false; ///< begins, ends at a mirror side
+    bool ring = false; ///< the last joins the first
+    /// Begins, ends at a mirror side, and goes on there as its image without a corner.
+    bool from_mirror = false, to_mirror = false;
 };
 
 bool corner_between(const Surface& s, int e, int f, double angle = corner_angle) {
     return s.normal[e].dot(s.normal[f]) < std::cos(angle);
+}
+
+/// Whether an element that ends at a mirror side meets its image in a corner.
+bool corner_at_side(const Surface& s, int e, double angle) {
+    const geometry::Vec3& n = s.normal[e];
+    return n.dot(geometry::Vec3(-n.x, n.y, n.z)) < std::cos(angle);
 }
 
 /// Pieces of the contour without a corner of more than `angle` [rad].
@@ -52,8 +59,9 @@ std::vector<Piece> smooth_pieces(const Domain& domain, const Surface& s, double 
             taken[e] = 1;
             piece.elements.push_back(e);
         }
-        piece.from_mirror = mirrors && s.previous[piece.elements.front()] < 0;
-        piece.to_mirror = mirrors && s.next[piece.elements.back()] < 0;
+        const int first = piece.elements.front(), last = piece.elements.back();
+        piece.from_mirror = mirrors && s.previous[first] < 0 && !corner_at_side(s, first, angle);
+        piece.to_mirror = mirrors && s.next[last] < 0 && !corner_at_side(s, last, angle);
         pieces.push_back(std::move(piece));
     }
     return pieces;
