@@ -32,12 +32,13 @@ Surface valley(Domain& d, bool half) {
     return tests::polyline(d, points, 10);
 }
 
-/// A trench with a bottom of two leaning faces, each `across` wide, in the middle or halved.
-Surface pointed_trench(Domain& d, bool half, double across) {
+/// A trench with a bottom of two faces, each `across` wide and leaning by `slope`, in the middle or
+/// halved.
+Surface pointed_trench(Domain& d, bool half, double across, double slope) {
     d.spacing = 1;
     d.cells_x = half ? 24 : 48;
     const double left = -0.5 * d.cells_x, right = 0.5 * d.cells_x, middle = half ? left : 0;
-    std::vector<Vec3> points = {{middle, 0, -20.0 + 0.2 * across},
+    std::vector<Vec3> points = {{middle, 0, -20.0 + slope * across},
                                 {middle + across, 0, -20},
                                 {middle + across, 0, 0},
                                 {right, 0, 0}};
@@ -80,8 +81,15 @@ TEST_CASE("half a shape between mirrors receives what the whole one does", "[dir
     }
     SECTION("pieces shorter and longer than the window, and than half of it") {
         for (const double across : {1.0, 2.0, 3.0, 4.0, 8.0}) {
-            const Surface of_whole = pointed_trench(whole, false, across),
-                          of_half = pointed_trench(half, true, across);
+            const Surface of_whole = pointed_trench(whole, false, across, 0.2),
+                          of_half = pointed_trench(half, true, across, 0.2);
+            compare_halves(whole, of_whole, half, of_half);
+        }
+    }
+    SECTION("a ridge so sharp that it is a corner") { // 22 to 53 deg of slope: 44 to 106 of turn
+        for (const double slope : {0.4, 0.8, 1.3}) {
+            const Surface of_whole = pointed_trench(whole, false, 8, slope),
+                          of_half = pointed_trench(half, true, 8, slope);
             compare_halves(whole, of_whole, half, of_half);
         }
     }
