@@ -1,18 +1,17 @@
 // SPDX-License-Identifier: Apache-2.0
 #include "fluxes/arc_average.hpp"
 
-#include <tbb/blocked_range.h>
-#include <tbb/parallel_for.h>
+#include "fluxes/surroundings.hpp"
 
 #include <algorithm>
 #include <cmath>
-#include <numeric>
 
 namespace rille::fluxes {
 namespace {
 
 using geometry::Domain;
 using geometry::Surface;
+using geometry::Vec3;
 
 constexpr double window_cells = 5;
 
@@ -36,7 +35,7 @@ bool corner_at_side(const Surface& s, int e, double angle) {
 
 /// Pieces of the contour without a corner of more than `angle` [rad].
 std::vector<Piece> smooth_pieces(const Domain& domain, const Surface& s, double angle) {
-    const bool mirrors = domain.extruded() && domain.sides == geometry::Sides::mirror;
+    const bool mirrors = domain.sides == geometry::Sides::mirror;
     const int count = static_cast<int>(s.size());
     std::vector<char> taken(count, 0);
     std::vector<Piece> pieces;
@@ -94,7 +93,7 @@ void add_piece(const Surface& surface, const Piece& piece, double window,
         // Shorter than the window: one average.
         for (int e : piece.elements)
             for (int f : piece.elements)
-                for (const bool image : {false, true})
+                for (const std::uint8_t image : {std::uint8_t(0), along_x})
                     if (halved || !image)
                         rows[e].push_back({f, image, surface.length(f) / all / (halved ? 2 : 1)});
         return;
@@ -135,7 +134,7 @@ void add_piece(const Surface& surface, const Piece& piece, double window,
         double sum = 0;
         auto& row = rows[piece.elements[i]];
         for (int j : near) {
-            for (const bool image : {false, true}) {
+            for (const std::uint8_t image : {std::uint8_t(0), along_x}) {
                 const double w = image ? of_image(i, j, true) : weight(i, j);
                 if (w <= 0) continue;
                 row.push_back({piece.elements[j], image, w});
@@ -145,82 +144,6 @@ void add_piece(const Surface& surface, const Piece& piece, double window,
         for (auto& part : row)
             part.weight /= sum;
     }
-}
-
-/// Lists of unequal length, one behind the other: [first[i], first[i + 1]).
-struct Lists {
-    std::vector<int> first, value;
-};
-
-/// The elements at each vertex.
-Lists elements_at_vertices(const Surface& surface) {
-    Lists at;
-    at.first.assign(surface.vertices.size() + 1, 0);
-    const auto over_corners = [&](const auto& work) {
-        for (int e = 0; e < static_cast<int>(surface.size()); ++e)
-            for (int i = 0; i < 4; ++i)
-                if (i < 3 || surface.corners[e][3] != surface.corners[e][2])
-                    work(surface.corners[e][i], e);
-    };
-    over_corners([&](int vertex, int) { ++at.first[vertex + 1]; });
-    std::partial_sum(at.first.begin(), at.first.end(), at.first.begin());
-    at.value.resize(at.first.back());
-    std::vector<int> next = at.first;
-    over_corners([&](int vertex, int e) { at.value[next[vertex]++] = e; });
-    return at;
-}
-
-/// Calls work(e, the element and those that share a corner with it, twice over) for every element.
-template <class Work>
-void over_surroundings(const Surface& surface, const Lists& at_vertex, const Work& work) {
-    const int count = static_cast<int>(surface.size());
-    tbb::parallel_for(tbb::blocked_range<int>(0, count, 64), [&](const auto& range) {
-        std::vector<int> found;
-        for (int e = range.begin(); e != range.end(); ++e) {
-            found.assign(1, e);
-            std::size_t begin = 0;
-            for (int ringed = 0; ringed < 2; ++ringed) {
-                const std::size_t end = found.size();
-                for (std::size_t k = begin; k < end; ++k)
-                    for (const int corner : surface.corners[found[k]])
-                        for (int i = at_vertex.first[corner]; i < at_vertex.first[corner + 1]; ++i)
-                            if (const int f = at_vertex.value[i];
-                                std::find(found.begin(), found.end(), f) == found.end() &&
-                                !corner_between(surface, e, f))
-                                found.push_back(f);
-                begin = end;
-            }
-            work(e, found);
-        }
-    });
-}
-
-/// Weights a_f / max(S_e, S_f), S the area around: times a_e they are the same both ways, so that
-/// averages keep sums over the surface. The rest stays with the element.
-ArcAverage average_over_surroundings(const Surface& surface) {
-    const Lists at_vertex = elements_at_vertices(surface);
-    ArcAverage average;
-    average.first.assign(surface.size() + 1, 0);
-    std::vector<double> area(surface.size(), 0.0);
-    over_surroundings(surface, at_vertex, [&](int e, const std::vector<int>& found) {
-        average.first[e + 1] = static_cast<int>(found.size());
-        for (const int f : found)
-            area[e] += surface.area[f];
-    });
-    std::partial_sum(average.first.begin(), average.first.end(), average.first.begin());
-    average.parts.resize(average.first.back());
-    over_surroundings(surface, at_vertex, [&](int e, const std::vector<int>& found) {
-        ArcAverage::Part* parts = average.parts.data() + average.first[e];
-        parts[0] = {e, false, 1.0};
-        for (std::size_t i = 1; i < found.size(); ++i) {
-            const int f = found[i];
-            const double widest = std::max(area[e], area[f]);
-            const double weight = widest > 0 ? surface.area[f] / widest : 0.0;
-            parts[i] = {f, false, weight};
-            parts[0].weight -= weight;
-        }
-    });
-    return average;
 }
 
 /// How much of an average is left between places whose normals differ by an angle of this cosine:
@@ -235,22 +158,37 @@ double left_over(double cosine) {
 /// angle would let averages jump where a bend that moves along comes and goes as a corner, and with
 /// them the rates on either side.
 void fade_with_turn(const Surface& surface, std::vector<std::vector<ArcAverage::Part>>& rows) {
-    const auto left_on_way = [&](int e, int f, const std::vector<int>& next) {
+    using Way = std::vector<int>;
+    const auto least_of = [&](double least, const Vec3& a, const Vec3& b, int k) {
+        return std::min(
+            {least, left_over(a.dot(surface.normal[k])), left_over(b.dot(surface.normal[k]))});
+    };
+    const auto left_on_way = [&](int e, int f, const Way& next) {
         double least = 1;
         for (int k = e; least > 0; k = next[k]) {
-            if (k < 0) return -1.0;
-            least = std::min({least, left_over(surface.normal[e].dot(surface.normal[k])),
-                              left_over(surface.normal[f].dot(surface.normal[k]))});
+            if (k < 0) return 0.0;
+            least = least_of(least, surface.normal[e], surface.normal[f], k);
             if (k == f) break;
         }
         return least;
     };
+    /// To the end of the chain and on in the image.
+    const auto left_to_image = [&](int e, int f, const Way& next) {
+        const Vec3 own = surface.normal[e], other = surface.normal[f];
+        double least = 1;
+        for (int k = e; k >= 0 && least > 0; k = next[k])
+            least = least_of(least, own, mirrored(other, along_x), k);
+        for (int k = f; k >= 0 && least > 0; k = next[k])
+            least = least_of(least, mirrored(own, along_x), other, k);
+        return least;
+    };
     for (std::size_t e = 0; e < rows.size(); ++e)
         for (ArcAverage::Part& part : rows[e]) {
-            const int own = static_cast<int>(e);
-            const bool ahead = part.element >= own;
-            part.weight *= std::max(
-                0.0, left_on_way(own, part.element, ahead ? surface.next : surface.previous));
+            const int own = static_cast<int>(e), other = part.element;
+            part.weight *= part.image ? std::max(left_to_image(own, other, surface.previous),
+                                                 left_to_image(own, other, surface.next))
+                                      : left_on_way(own, other,
+                                                    other >= own ? surface.next : surface.previous);
         }
 }
 
@@ -288,14 +226,14 @@ void weigh_by_area(const Surface& surface, std::vector<std::vector<ArcAverage::P
             rest -= part.weight;
         }
         for (ArcAverage::Part& part : rows[e])
-            if (part.element == static_cast<int>(e)) part.weight += rest;
+            if (part.element == static_cast<int>(e) && !part.image) part.weight += rest;
     }
 }
 
 } // namespace
 
 ArcAverage arc_average(const Domain& domain, const Surface& surface) {
-    if (!domain.planar_contour()) return average_over_surroundings(surface);
+    if (!domain.planar_contour()) return average_over_surroundings(domain, surface);
     std::vector<std::vector<ArcAverage::Part>> rows(surface.size());
     const double angle = domain.revolved() ? 1.5 * corner_angle : corner_angle;
     for (const Piece& piece : smooth_pieces(domain, surface, angle))
@@ -316,9 +254,7 @@ std::vector<geometry::Vec3> averaged_normals(const Surface& surface, const ArcAv
         geometry::Vec3 sum(0, 0, 0);
         for (int i = average.first[e]; i < average.first[e + 1]; ++i) {
             const ArcAverage::Part& part = average.parts[i];
-            geometry::Vec3 normal = surface.normal[part.element];
-            if (part.image) normal.x = -normal.x;
-            sum += normal * part.weight;
+            sum += mirrored(surface.normal[part.element], part.image) * part.weight;
         }
         const double length = sum.length();
         normals[e] = length > 1e-12 ? sum / length : surface.normal[e];

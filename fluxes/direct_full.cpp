@@ -39,6 +39,11 @@ Launch launch_of(const Launcher& launcher, const ScrambledPoints& points, int k)
     return launcher(place[0], place[1]);
 }
 
+double on_row(const float* row, const AngleNode& at) {
+    const double low = row[at.node], high = row[at.node + 1];
+    return low + at.part * (high - low);
+}
+
 class FullGather : public IonGather {
 public:
     FullGather(const geometry::Domain& domain, const geometry::Surface& surface,
@@ -95,7 +100,13 @@ private:
     template <class Work>
     void over_parts(int e, const Work& work) const {
         for (int i = average_->first[e]; i < average_->first[e + 1]; ++i)
-            work(average_->parts[i].element, average_->parts[i].weight);
+            work(average_->parts[i]);
+    }
+    /// Whether angles of an image count the other way round. In full they are counted towards the
+    /// element's own normal, which is turned over with it.
+    bool turned(const ArcAverage::Part& part) const { return domain_.revolved() && part.image; }
+    AngleNode own_node(int e, bool turn) const {
+        return angle_node(tables_.angles(), turn ? -own_angle(e) : own_angle(e));
     }
     const std::uint64_t* words(int group, int e) const {
         return arrives_.data() + (std::size_t(e) * kernels_.groups() + group) * words_;
@@ -149,8 +160,8 @@ Selection FullGather::select(Materials materials) const {
 std::vector<FullGather::Raw> FullGather::plan(std::map<Materials, Selection>& selections) const {
     std::vector<Raw> raw(surface_.size());
     for (int e = 0; e < static_cast<int>(raw.size()); ++e) {
-        const int node = angle_node(tables_.angles(), own_angle(e)).node;
-        over_parts(e, [&](int f, double) {
+        over_parts(e, [&](const ArcAverage::Part& part) {
+            const int f = part.element, node = own_node(e, turned(part)).node;
             Nodes& nodes = raw[f].nodes;
             nodes = nodes.size() == 0
                         ? Nodes{node, node + 2}
@@ -222,17 +233,17 @@ void FullGather::trace(const SkyView& view, int e, const Raw& raw, std::vector<d
 
 void FullGather::average(int e, const std::vector<Raw>& raw, const std::vector<float>& rows,
                          const std::vector<float>& batch) {
-    const AngleNode at = angle_node(tables_.angles(), own_angle(e));
+    const std::array<AngleNode, 2> nodes{own_node(e, false), own_node(e, true)};
     const std::vector<int>& sums = wanted_.of(e);
     for (std::size_t i = 0; i < sums.size(); ++i) {
         double own = 0;
         std::array<double, batches> spread{};
-        over_parts(e, [&](int f, double weight) {
+        over_parts(e, [&](const ArcAverage::Part& part) {
+            const auto [f, image, weight] = part;
+            const AngleNode& at = nodes[turned(part)];
             const int place = raw[f].selection->place[sums[i]];
             const float* row = rows.data() + raw[f].row + std::size_t(place) * raw[f].nodes.size();
-            const double low = row[at.node - raw[f].nodes.from];
-            const double high = row[at.node - raw[f].nodes.from + 1];
-            own += weight * (low + at.part * (high - low));
+            own += weight * on_row(row, {at.node - raw[f].nodes.from, at.part});
             const float* of = batch.data() + raw[f].batch + std::size_t(place) * batches;
             for (int b = 0; b < batches; ++b)
                 spread[b] += weight * of[b];
@@ -268,6 +279,9 @@ void FullGather::add_again(int e, const Selection& selection, std::vector<double
 void FullGather::visit_rows(const DirectIons::UseRows& use) const {
     const std::vector<int> order = spatial_order(surface_);
     const std::size_t angles = tables_.angles().size();
+    std::vector<AngleNode> over; // where the angles lie in rows of images
+    for (const double angle : tables_.angles())
+        over.push_back(angle_node(tables_.angles(), -angle));
     std::vector<int> local(order.size(), -1), near;
     for (std::size_t begin = 0; begin < order.size(); begin += chunk_elements) {
         const std::size_t end = std::min(order.size(), begin + chunk_elements);
@@ -277,7 +291,8 @@ void FullGather::visit_rows(const DirectIons::UseRows& use) const {
             const MaterialsInReach& reach = *wanted_.reach;
             for (int r = reach.first[order[i]]; r < reach.first[order[i] + 1]; ++r)
                 materials |= bit_of(reach.material[r]);
-            over_parts(order[i], [&](int f, double) {
+            over_parts(order[i], [&](const ArcAverage::Part& part) {
+                const int f = part.element;
                 if (local[f] >= 0) return;
                 local[f] = static_cast<int>(near.size());
                 near.push_back(f);
@@ -299,10 +314,15 @@ void FullGather::visit_rows(const DirectIons::UseRows& use) const {
             std::vector<double> mean(size);
             for (std::size_t i = range.begin(); i != range.end(); ++i) {
                 std::fill(mean.begin(), mean.end(), 0.0);
-                over_parts(order[i], [&](int f, double weight) {
-                    const float* from = rows.data() + local[f] * size;
-                    for (std::size_t k = 0; k < size; ++k)
-                        mean[k] += weight * from[k];
+                over_parts(order[i], [&](const ArcAverage::Part& part) {
+                    const float* from = rows.data() + local[part.element] * size;
+                    if (turned(part))
+                        for (std::size_t k = 0; k < size; ++k)
+                            mean[k] +=
+                                part.weight * on_row(from + k - k % angles, over[k % angles]);
+                    else
+                        for (std::size_t k = 0; k < size; ++k)
+                            mean[k] += part.weight * from[k];
                 });
                 use(order[i], {mean.data(), selection.place.data(), angles, {0, int(angles)}});
             }

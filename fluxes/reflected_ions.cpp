@@ -103,7 +103,9 @@ private:
                                   const std::vector<double>& along) const {
         std::vector<double> angle(surface_.size());
         for (std::size_t e = 0; e < angle.size(); ++e) {
-            const double z = average_->of(up, int(e)), h = average_->of_sideways(along, int(e));
+            const double z = average_->of(up, int(e));
+            const double h = domain_.planar_contour() ? average_->of_sideways(along, int(e))
+                                                      : average_->of(along, int(e));
             angle[e] = z != 0 || h != 0 ? std::atan2(h, z) : own_angle(e);
         }
         return angle;
