@@ -29,8 +29,8 @@ bool corner_between(const Surface& s, int e, int f, double angle = corner_angle)
 
 /// Whether an element that ends at a mirror side meets its image in a corner.
 bool corner_at_side(const Surface& s, int e, double angle) {
-    const geometry::Vec3& n = s.normal[e];
-    return n.dot(geometry::Vec3(-n.x, n.y, n.z)) < std::cos(angle);
+    const Vec3& n = s.normal[e];
+    return n.dot(mirrored(n, along_x)) < std::cos(angle);
 }
 
 /// Pieces of the contour without a corner of more than `angle` [rad].
