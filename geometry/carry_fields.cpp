@@ -23,6 +23,7 @@ void carry_fields(const Surface& from, const Surface& to, const std::vector<doub
     const CarryTask task{from,
                          to,
                          moved,
+                         domain,
                          periodic ? domain.width_x() : 0,
                          periodic ? domain.width_y() : 0,
                          domain.revolved(),

@@ -4,6 +4,7 @@
 #include "geometry/ranges.hpp"
 
 #include <algorithm>
+#include <array>
 #include <cmath>
 
 namespace rille::geometry {
@@ -14,15 +15,16 @@ constexpr std::size_t grain = 2048;
 constexpr double narrow = 1.8; ///< [mean element sizes] values are taken from within
 constexpr double wide = 3.5;   ///< [mean element sizes] corrections are spread over
 
-/// New values are weighted means of the old ones that moved next to them. What a per-area amount
-/// then lacks or has too much is spread over the neighbourhood in proportion to what lies there, so
-/// that the integral is exact and nothing turns negative.
+/// New values are weighted means of the old ones that moved next to them, images in mirror sides
+/// among them. What a per-area amount then lacks or has too much is spread over the neighbourhood
+/// in proportion to what lies there, so that the integral is exact and nothing turns negative.
 class FullCarrier {
 public:
     explicit FullCarrier(const CarryTask& task)
         : task_(task), from_(task.from), to_(task.to), size_(mean_size(task.to)), foot_(feet(task)),
           old_bins_(foot_, size_, task.period_x, task.period_y),
           new_bins_(task.to.centre, size_, task.period_x, task.period_y) {
+        if (task.domain.sides == Sides::mirror) place_mirrors();
         weigh();
         measure_shares();
     }
@@ -39,6 +41,7 @@ public:
 
 private:
     using Values = std::vector<double>;
+    using Over = std::array<bool, 2>; ///< turned over along x, y
 
     static double mean_size(const Surface& s) {
         double sum = 0;
@@ -54,10 +57,53 @@ private:
         return out;
     }
 
+    /// A mirror side: the plane at `at` along an axis, the period above (1) or below it (-1).
+    struct Mirror {
+        double at;
+        int inwards;
+    };
+    void place_mirrors() {
+        const Domain& d = task_.domain;
+        mirrors_[0] = {{d.x_min(), 1}, {d.x_max(), -1}};
+        mirrors_[1] = {{d.y_min(), 1}, {-d.y_min(), -1}};
+        for (int axis = 0; axis < 2; ++axis)
+            for (const Mirror& m : mirrors_[axis])
+                for (const Vec3& p : foot_)
+                    overshoot_ = std::max(overshoot_, (m.at - p[axis]) * m.inwards);
+    }
+    static Vec3 turned(Vec3 v, const Over& over) {
+        for (int axis = 0; axis < 2; ++axis)
+            if (over[axis]) v[axis] = -v[axis];
+        return v;
+    }
+
+    /// visit(n, displacement from p, how n is turned over) for every point of the bins and every
+    /// image of one within `radius`. From an image to p is as far as from the point to the image
+    /// of p.
+    template <class Visit>
+    void near(const ElementBins& bins, const Vec3& p, double radius, const Visit& visit) const {
+        const auto along = [&](int axis, const Vec3& q, const auto& use) {
+            use(q, false);
+            for (const Mirror& m : mirrors_[axis]) {
+                if ((q[axis] - m.at) * m.inwards > radius + overshoot_) continue;
+                Vec3 image = q;
+                image[axis] = 2 * m.at - q[axis];
+                use(image, true);
+            }
+        };
+        along(0, p, [&](const Vec3& q, bool over_x) {
+            along(1, q, [&](const Vec3& r, bool over_y) {
+                const Over over{over_x, over_y};
+                bins.near(r, radius,
+                          [&](int n, const Vec3& d) { visit(n, turned(d, over), over); });
+            });
+        });
+    }
+
     /// By area, so that small elements, of which there are many next to each other, count for no
     /// more than they hold.
-    double weight(int e, int j, const Vec3& d, double radius) const {
-        const double facing = from_.normal[e].dot(to_.normal[j]);
+    double weight(int e, int j, const Vec3& d, const Over& over, double radius) const {
+        const double facing = from_.normal[e].dot(turned(to_.normal[j], over));
         if (facing <= 0) return 0;
         const double t = 1 - d.length() / (radius * size_);
         return t <= 0 ? 0 : facing * t * t * from_.area[e] / (size_ * size_);
@@ -71,10 +117,13 @@ private:
             for (std::size_t j = first; j < last; ++j) {
                 double sum = 0;
                 int same = -1;
-                old_bins_.near(to_.centre[j], narrow * size_, [&](int e, const Vec3& d) {
-                    if (d == Vec3(0, 0, 0) && from_.normal[e] == to_.normal[j]) same = e;
-                    sum += weight(e, static_cast<int>(j), d, narrow);
-                });
+                near(old_bins_, to_.centre[j], narrow * size_,
+                     [&](int e, const Vec3& d, const Over& over) {
+                         if (over == Over{} && d == Vec3(0, 0, 0) &&
+                             from_.normal[e] == to_.normal[j])
+                             same = e;
+                         sum += weight(e, static_cast<int>(j), d, over, narrow);
+                     });
                 total_[j] = sum;
                 if (same >= 0)
                     single_[j] = same;
@@ -89,11 +138,13 @@ private:
         share_.assign(from_.size(), 0);
         over_ranges(from_.size(), grain, [&](std::size_t first, std::size_t last) {
             for (std::size_t e = first; e < last; ++e)
-                new_bins_.near(foot_[e], narrow * size_, [&](int j, const Vec3& d) {
-                    if (single_[j] < 0)
-                        share_[e] +=
-                            to_.area[j] * weight(static_cast<int>(e), j, d, narrow) / total_[j];
-                });
+                near(new_bins_, foot_[e], narrow * size_,
+                     [&](int j, const Vec3& d, const Over& over) {
+                         if (single_[j] < 0)
+                             share_[e] += to_.area[j] *
+                                          weight(static_cast<int>(e), j, d, over, narrow) /
+                                          total_[j];
+                     });
         });
         for (std::size_t j = 0; j < to_.size(); ++j)
             if (single_[j] >= 0) share_[single_[j]] += to_.area[j];
@@ -111,11 +162,12 @@ private:
                     continue;
                 }
                 std::fill(sums.begin(), sums.end(), 0.0);
-                old_bins_.near(to_.centre[j], narrow * size_, [&](int e, const Vec3& d) {
-                    const double w = weight(e, static_cast<int>(j), d, narrow);
-                    for (std::size_t f = 0; f < old.size(); ++f)
-                        sums[f] += w * old[f][e];
-                });
+                near(old_bins_, to_.centre[j], narrow * size_,
+                     [&](int e, const Vec3& d, const Over& over) {
+                         const double w = weight(e, static_cast<int>(j), d, over, narrow);
+                         for (std::size_t f = 0; f < old.size(); ++f)
+                             sums[f] += w * old[f][e];
+                     });
                 for (std::size_t f = 0; f < old.size(); ++f)
                     now[f][j] = sums[f] / total_[j];
             }
@@ -141,11 +193,13 @@ private:
                     any = any || excess[a][e] != 0;
                 }
                 if (!any) continue;
-                new_bins_.near(foot_[e], wide * size_, [&](int j, const Vec3& d) {
-                    const double w = weight(static_cast<int>(e), j, d, wide) * to_.area[j];
-                    for (std::size_t a = 0; a < count; ++a)
-                        sums[a] += w * std::fabs(now[amounts[a]][j]);
-                });
+                near(new_bins_, foot_[e], wide * size_,
+                     [&](int j, const Vec3& d, const Over& over) {
+                         const double w =
+                             weight(static_cast<int>(e), j, d, over, wide) * to_.area[j];
+                         for (std::size_t a = 0; a < count; ++a)
+                             sums[a] += w * std::fabs(now[amounts[a]][j]);
+                     });
                 for (std::size_t a = 0; a < count; ++a)
                     scale[a][e] = sums[a] > 0 ? excess[a][e] / sums[a] : 0;
             }
@@ -157,11 +211,12 @@ private:
             Values sums(count);
             for (std::size_t j = first; j < last; ++j) {
                 std::fill(sums.begin(), sums.end(), 0.0);
-                old_bins_.near(to_.centre[j], wide * size_, [&](int e, const Vec3& d) {
-                    const double w = weight(e, static_cast<int>(j), d, wide);
-                    for (std::size_t a = 0; a < count; ++a)
-                        sums[a] += scale[a][e] * w;
-                });
+                near(old_bins_, to_.centre[j], wide * size_,
+                     [&](int e, const Vec3& d, const Over& over) {
+                         const double w = weight(e, static_cast<int>(j), d, over, wide);
+                         for (std::size_t a = 0; a < count; ++a)
+                             sums[a] += scale[a][e] * w;
+                     });
                 for (std::size_t a = 0; a < count; ++a) {
                     const double here = now[amounts[a]][j];
                     if (sums[a] != 0) next[a][j] = here + sums[a] * std::fabs(here);
@@ -198,6 +253,8 @@ private:
     double size_;
     std::vector<Vec3> foot_;
     ElementBins old_bins_, new_bins_;
+    std::array<std::vector<Mirror>, 2> mirrors_; ///< across x, y; none where the period repeats
+    double overshoot_ = 0;                       ///< how far feet lie beyond mirrors [nm]
     std::vector<double> total_, share_;
     std::vector<int> single_;
 };
