@@ -14,6 +14,7 @@ namespace {
 
 constexpr double flat_cosine = 0.978;  ///< 12 deg: quads round a vertex away from edges
 constexpr double sharp_cosine = 0.906; ///< 25 deg: a vertex worth looking at
+constexpr double smooth_side = 0.26;   ///< sine of 15 deg: 30 deg between a quad and its image
 constexpr double bent = 0.35;          ///< [rad] turn at a quad that halves its say in a face
 constexpr double turned_over = 0.2;    ///< cosine of an element that lies the wrong way
 constexpr double laid_together = -0.8; ///< cosine between two elements that meet back to back
@@ -85,24 +86,64 @@ private:
         return false;
     }
 
+    /// One bit for each mirror side that the surface meets at a vertex without an edge between it
+    /// and its image. An edge on a side is in place: vertices lie where the surface ends.
+    using Meets = std::uint8_t;
+    static Meets side(int axis, bool upper) { return 1 << (2 * axis + upper); }
+    static bool meets_any(Meets meets, int axis) {
+        return meets & (side(axis, false) | side(axis, true));
+    }
+    Meets met_by(int v) const {
+        Meets meets = 0;
+        if (band_.domain.sides != Sides::mirror) return meets;
+        const DualCell& cell = mesh_.cells[mesh_.cell_of_vertex[v]];
+        const auto& c = band_.cells[cell.node];
+        const bool last[2] = {c.i == band_.domain.cells_x - 1, c.j == band_.domain.cells_y - 1};
+        for (int axis = 0; axis < 2; ++axis)
+            if ((cell.low[axis] || last[axis]) && meets_smoothly(v, axis))
+                meets |= side(axis, !cell.low[axis]);
+        return meets;
+    }
+    bool meets_smoothly(int v, int axis) const {
+        return std::all_of(mesh_.round.begin() + mesh_.first[v],
+                           mesh_.round.begin() + mesh_.first[v + 1],
+                           [&](int n) { return std::fabs(mesh_.normal[n][axis]) < smooth_side; });
+    }
+
+    /// Between normals round a vertex, those of images in mirror sides among them.
     double least_cosine(int v) const {
         double least = 1;
         for (int a = mesh_.first[v]; a < mesh_.first[v + 1]; ++a)
-            for (int b = mesh_.first[v]; b < a; ++b)
-                least =
-                    std::min(least, mesh_.normal[mesh_.round[a]].dot(mesh_.normal[mesh_.round[b]]));
+            least = std::min(least, least_cosine(mesh_.normal[mesh_.round[a]], v, a + 1));
+        return least;
+    }
+    /// Between `n` and the normals of the first quads round a vertex.
+    double least_cosine(const Vec3& n, int v, int end) const {
+        double least = 1;
+        for (int a = mesh_.first[v]; a < end; ++a) {
+            const Vec3& other = mesh_.normal[mesh_.round[a]];
+            double cosine = n.z * other.z;
+            for (int axis = 0; axis < 2; ++axis) {
+                const double along = n[axis] * other[axis];
+                cosine += meets_any(meets_[v], axis) ? -std::fabs(along) : along;
+            }
+            least = std::min(least, cosine);
+        }
         return least;
     }
 
     void mark() {
         const std::size_t vertices = mesh_.position.size();
+        meets_.resize(vertices);
         turn_.resize(vertices);
         trust_.resize(mesh_.quads.size());
         clean_.resize(mesh_.quads.size());
         sharp_.resize(vertices);
         over_ranges(vertices, 4096, [&](std::size_t first, std::size_t last) {
-            for (std::size_t v = first; v < last; ++v)
+            for (std::size_t v = first; v < last; ++v) {
+                meets_[v] = met_by(static_cast<int>(v));
                 turn_[v] = least_cosine(static_cast<int>(v));
+            }
         });
         over_ranges(mesh_.quads.size(), 4096, [&](std::size_t first, std::size_t last) {
             for (std::size_t n = first; n < last; ++n) {
@@ -132,21 +173,23 @@ private:
         double least = turn_[v];
         for (int a = mesh_.first[v]; a < mesh_.first[v + 1]; ++a)
             for (int w : mesh_.quads[mesh_.round[a]].vertex)
-                for (int b = mesh_.first[w]; b < mesh_.first[w + 1]; ++b)
-                    least = std::min(least, n.dot(mesh_.normal[mesh_.round[b]]));
+                least = std::min(least, least_cosine(n, w, mesh_.first[w + 1]));
         return least < sharp_cosine;
     }
 
-    /// Quads within `reach` of vertex v, reached over the surface.
+    /// Quads within `reach` of vertex v, reached over the surface, and their images in the mirror
+    /// sides that the surface meets there.
     std::vector<FaceSample> samples_near(int v, Seen& seen) const {
         std::vector<FaceSample> samples;
         samples.reserve(96);
         seen.queue.assign(1, v);
         const Vec3 here = mesh_.position[v];
         const double most = reach * reach * h_ * h_;
+        Meets meets = 0;
         seen.vertex[v] = v;
         for (std::size_t at = 0; at < seen.queue.size(); ++at) {
             const int from = seen.queue[at];
+            meets |= meets_[from];
             for (int a = mesh_.first[from]; a < mesh_.first[from + 1]; ++a) {
                 const int n = mesh_.round[a];
                 if (seen.quad[n] == v) continue;
@@ -166,7 +209,23 @@ private:
                 samples.push_back(s);
             }
         }
+        for (int axis = 0; axis < 2; ++axis)
+            for (const bool upper : {false, true})
+                if (meets & side(axis, upper)) add_images(axis, upper, here, samples);
         return samples;
+    }
+
+    void add_images(int axis, bool upper, const Vec3& here,
+                    std::vector<FaceSample>& samples) const {
+        const Domain& d = band_.domain;
+        const double width = axis == 0 ? d.width_x() : d.width_y();
+        const double plane = ((upper ? 0.5 : -0.5) * width - here[axis]) / h_;
+        for (std::size_t n = 0, count = samples.size(); n < count; ++n) {
+            FaceSample s = samples[n];
+            s.point[axis] = 2 * plane - s.point[axis];
+            s.normal[axis] = -s.normal[axis];
+            if (s.point.length2() <= reach * reach) samples.push_back(s);
+        }
     }
 
     /// Crossings of the cell's edges with the fitted solid; `touched` tells which faces they lie
@@ -260,6 +319,7 @@ private:
     const Band& band_;
     DualMesh& mesh_;
     double h_;
+    std::vector<Meets> meets_;         ///< of a vertex
     std::vector<double> turn_, trust_; ///< least cosine round a vertex; of a quad for a face
     std::vector<char> clean_, sharp_;
 };

@@ -156,6 +156,24 @@ TEST_CASE("round surfaces get no edges", "[surface]") {
             }
 }
 
+TEST_CASE("parts of round surfaces between mirrors get no edges", "[surface]") {
+    // Oracle: half and quarter balls and voids about a side and about where two sides meet.
+    // Source: derived here. Tolerance: 0.12 cell; faces fitted from within the period alone put
+    // edges that stand off by up to 0.2 cells.
+    const Domain d = full(16, 16, 1.0);
+    for (const double radius : {2.5, 3.0, 3.1, 4.0, 6.0})
+        for (const double sign : {1.0, -1.0})
+            for (const double shift : {0.0, 0.3, 0.5})
+                for (const Vec3& centre : {Vec3(-8, -8, shift), Vec3(8, shift, 0.2)}) {
+                    const auto ball = [&](const Vec3& p) {
+                        return sign * ((p - centre).length() - radius);
+                    };
+                    CAPTURE(radius, sign, shift, centre.x);
+                    const Surface s = extract_surface(make_band(d, ball, -radius, radius + 1));
+                    CHECK(largest_distance(s, ball) < 0.12);
+                }
+}
+
 TEST_CASE("full surfaces cover one period whatever the sides", "[surface]") {
     // Oracle: projected area of the period; a closed rim. Source: derived here. Tolerance: 1e-9.
     for (const Sides sides : {Sides::mirror, Sides::periodic})
