@@ -1,5 +1,6 @@
 // SPDX-License-Identifier: Apache-2.0
 #include "geometry/contour.hpp"
+#include "geometry/mirror_side.hpp"
 
 #include <algorithm>
 #include <cmath>
@@ -7,11 +8,6 @@
 namespace rille::geometry {
 
 namespace {
-
-double minmod(double a, double b) {
-    if (a * b <= 0) return 0;
-    return std::fabs(a) < std::fabs(b) ? a : b;
-}
 
 /// Points are keyed by the grid edge they cross: edges of cell c are 4c (to +x), 4c + 1 (to +z),
 /// and at a mirror side 4c + 2 (from c to the side plane), 4c + 3 (along the side plane to +z).
@@ -36,17 +32,9 @@ public:
     }
 
 private:
-    /// Value on the mirror side plane next to outermost cell c, from inside: exact for linear phi,
-    /// third order where phi is smooth and even.
+    /// Value on the mirror side plane next to outermost cell c.
     double side_value(int c, int side) const {
-        const int one = band_.neighbour[c][side < 0 ? 1 : 0];
-        if (one < 0 || one == c) return band_.phi[c];
-        const double slope = band_.phi[one] - band_.phi[c];
-        const int two = band_.neighbour[one][side < 0 ? 1 : 0];
-        const double bend = two < 0 || two == one
-                                ? 0
-                                : minmod(slope, band_.phi[two] - 2 * band_.phi[one] + band_.phi[c]);
-        return band_.phi[c] - 0.5 * (slope - 0.75 * bend);
+        return band_.phi[c] + change_to_side(band_, c, 0, side < 0);
     }
 
     void inner_cell(int c, int up) {

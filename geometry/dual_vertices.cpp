@@ -1,5 +1,6 @@
 // SPDX-License-Identifier: Apache-2.0
 #include "geometry/dual_mesh.hpp"
+#include "geometry/mirror_side.hpp"
 #include "geometry/ranges.hpp"
 
 #include <algorithm>
@@ -8,25 +9,6 @@
 namespace rille::geometry {
 
 namespace {
-
-double minmod(double a, double b) {
-    if (a * b <= 0) return 0;
-    return std::fabs(a) < std::fabs(b) ? a : b;
-}
-
-/// Change of phi from an outermost node to the mirror side half a cell further out along `axis`,
-/// from inside: exact for linear phi, third order where phi is smooth and even.
-double change_to_side(const Band& band, int node, int axis, bool low) {
-    const int inwards = 2 * axis + (low ? 1 : 0);
-    const int one = band.neighbour[node][inwards];
-    if (one < 0 || one == node) return 0;
-    const double slope = band.phi[one] - band.phi[node];
-    const int two = band.neighbour[one][inwards];
-    const double bend = two < 0 || two == one
-                            ? 0
-                            : minmod(slope, band.phi[two] - 2 * band.phi[one] + band.phi[node]);
-    return -0.5 * (slope - 0.75 * bend);
-}
 
 struct CellValues {
     std::array<double, 8> value{}; ///< on the side plane where the cell lies on one
@@ -136,6 +118,11 @@ CrossedCell crossed_cell(const Band& band, const DualMesh& mesh, int vertex) {
 }
 
 namespace {
+
+double minmod(double a, double b) {
+    if (a * b <= 0) return 0;
+    return std::fabs(a) < std::fabs(b) ? a : b;
+}
 
 /// Part of the grid edge from the node to its upper neighbour along `axis` that lies before the
 /// contour: phi linear, bent by what the second differences at both ends agree on.
