@@ -8,6 +8,12 @@ namespace rille::geometry {
 
 namespace {
 constexpr double smooth_cosine = 0.8660254037844386; ///< 30 degrees: beyond it there is a corner
+
+/// Whether an element at the end of a chain and its image in the mirror there are smoothly joined.
+bool meets_image(const Vec3& normal) {
+    return normal.dot(Vec3(-normal.x, normal.y, normal.z)) >= smooth_cosine;
+}
+
 } // namespace
 
 BetweenCentres between_centres(const Domain& domain, const Surface& s, int element, Vec3 foot) {
@@ -25,6 +31,7 @@ BetweenCentres between_centres(const Domain& domain, const Surface& s, int eleme
     };
     const int onwards = ahead > 0 ? s.next[element] : s.previous[element];
     const int behind = ahead > 0 ? s.previous[element] : s.next[element];
+    if (onwards < 0 && meets_image(s.normal[element])) return place;
     place.partner = smooth(onwards) ? onwards : smooth(behind) ? behind : -1;
     if (place.partner < 0) return place;
     place.share = std::fabs(ahead) / (0.5 * (length + s.length(place.partner)));

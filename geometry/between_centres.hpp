@@ -13,8 +13,8 @@ namespace rille::geometry {
 /// the element and that of its partner.
 struct BetweenCentres {
     int element = -1;
-    int partner = -1; ///< neighbour on that side; beyond the last centre before a corner or an end
-                      ///< the one on the other side; -1: none
+    int partner = -1; ///< neighbour on that side; beyond the last centre before a corner the one
+                      ///< on the other side; -1: none, or its own image in a mirror
     double share = 0; ///< in (-1, 1); < 0: the place lies on the side away from the partner
 };
 

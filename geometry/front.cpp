@@ -10,6 +10,7 @@
 #include <cstring>
 #include <istream>
 #include <ostream>
+#include <utility>
 
 namespace rille::geometry {
 
@@ -57,7 +58,12 @@ Front::Front(const Domain& domain, const std::function<double(const Vec3&)>& sig
     state_->index.build(band);
 }
 
-Front::Front(std::unique_ptr<State> state) : state_(std::move(state)) {}
+Front::Front(Band&& band) : state_(std::make_unique<State>()) {
+    state_->band = std::move(band);
+    connect(state_->band);
+    state_->index.build(state_->band);
+}
+
 Front::Front(const Front& other) : state_(std::make_unique<State>(*other.state_)) {}
 Front::Front(Front&&) noexcept = default;
 Front& Front::operator=(const Front& other) {
@@ -134,8 +140,7 @@ Front Front::load(std::istream& in) {
     get(in, mark, sizeof mark);
     if (std::memcmp(mark, file_mark, sizeof mark) != 0)
         throw NumericsError("this is not a saved front of this version");
-    auto state = std::make_unique<State>();
-    Band& band = state->band;
+    Band band;
     std::int32_t shape[4];
     std::uint64_t count = 0;
     get(in, shape, 4);
@@ -149,9 +154,7 @@ Front Front::load(std::istream& in) {
     band.phi.resize(count);
     get(in, band.cells.data(), count);
     get(in, band.phi.data(), count);
-    connect(band);
-    state->index.build(band);
-    return Front(std::move(state));
+    return Front(std::move(band));
 }
 
 } // namespace rille::geometry

@@ -26,6 +26,8 @@ public:
     /// z_high [nm] bound the initial surface (all surface lies between them).
     Front(const Domain& domain, const std::function<double(const Vec3&)>& signed_distance,
           double z_low, double z_high);
+    /// From cells in the order of a band and their phi; neighbours are found here.
+    explicit Front(Band&&);
     Front(const Front&);
     Front(Front&&) noexcept;
     Front& operator=(const Front&);
@@ -48,7 +50,6 @@ public:
 
 private:
     struct State;
-    explicit Front(std::unique_ptr<State>);
     std::unique_ptr<State> state_;
 };
 

@@ -53,3 +53,28 @@ TEST_CASE("extrapolated values keep their sign") {
     CHECK(value_between(1, -9, -0.5) == 2);
     CHECK(value_between(0, 5, -0.5) == 0);
 }
+
+// Oracle: a field that is even about a mirror side does not change between the last centre and its
+// image; a slope that meets its image in an edge has a field of its own up to the edge.
+// Source: definition of a mirror. Tolerance: exact; 1e-12.
+TEST_CASE("values between the last centre and a mirror side") {
+    Domain d;
+    d.cells_x = 60;
+    for (const bool level : {true, false})
+        for (const double side : {-1.0, 1.0}) {
+            CAPTURE(level, side);
+            const double rise = level ? 2 : 20;
+            const Surface s = rille::tests::polyline(d, {{-30, 0, 0}, {0, 0, rise}, {30, 0, 0}}, 3);
+            const int last = side < 0 ? 0 : static_cast<int>(s.size()) - 1;
+            const Vec3 end = s.vertices[s.corners[last][side < 0 ? 0 : 1]];
+            REQUIRE(std::fabs(end.x) == 30);
+            const BetweenCentres at = between_centres(d, s, last, end);
+            CHECK(at.element == last);
+            CHECK((at.partner < 0) == level);
+            if (level) continue;
+            const auto field = [](const Vec3& p) { return 50 - std::fabs(p.x); };
+            const double own = field(s.centre[last]);
+            CHECK(value_between(own, field(s.centre[at.partner]), at.share) ==
+                  Approx(field(end)).epsilon(1e-12));
+        }
+}
