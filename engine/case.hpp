@@ -7,6 +7,7 @@
 #include "engine/start_contour.hpp"
 #include "fluxes/mechanism.hpp"
 #include "geometry/domain.hpp"
+#include "geometry/fold.hpp"
 #include "geometry/initial_shape.hpp"
 #include "geometry/stack.hpp"
 
@@ -60,6 +61,8 @@ struct Case {
     std::string title;
     std::string file; ///< path of the case file
     geometry::Domain domain;
+    /// How `domain` lies in the period that the file means, in a part of it (symmetric_part.hpp).
+    geometry::Fold fold;
     double spacing_asked = 0;           ///< [nm] before rounding to a whole number of cells
     double accuracy_cd_nm = 0;          ///< error that CDs may have; 0 = the spacing is given
     bool assess_grid_error = false;     ///< by companion runs on coarser grids

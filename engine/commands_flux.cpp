@@ -7,6 +7,7 @@
 #include "engine/picture.hpp"
 #include "engine/problems.hpp"
 #include "engine/surface_flux.hpp"
+#include "engine/symmetric_part.hpp"
 #include "engine/words.hpp"
 
 #include <iostream>
@@ -50,9 +51,10 @@ int flux_command(const std::string& case_path, const std::string& plasma, const 
                      force ? OutputFolder::Existing::force : OutputFolder::Existing::refuse);
     Progress progress(std::cerr, Progress::style_for(STDERR_FILENO, options.quiet));
     tell(progress, 0, "surface");
-    const Simulation simulation(c);
+    const Case part = symmetric_part(c);
+    const Simulation simulation(part);
     tell(progress, 0.1, "arrivals");
-    const SurfaceFlux flux = surface_flux(c, simulation, burning);
+    const SurfaceFlux flux = unfolded(part, surface_flux(part, simulation, burning));
     tell(progress, 0.9, "files");
     const nlohmann::json json = flux_json(c, flux, options.command_line);
     const std::string picture = flux_picture_svg(c, flux);

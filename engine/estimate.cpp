@@ -4,6 +4,7 @@
 #include "engine/console.hpp"
 #include "engine/run.hpp"
 #include "engine/run_record.hpp"
+#include "engine/symmetric_part.hpp"
 #include "geometry/band.hpp"
 
 #include <algorithm>
@@ -18,14 +19,14 @@ constexpr double pi = 3.14159265358979;
 constexpr double pictures_mb = 25; // what drawing and writing the result needs beside the run
 constexpr int frames_a_run = 10;
 
-/// Area of the walls [nm^2; of a contour: nm] per nm of their height.
-double wall_perimeter(const Case& the_case) {
+/// Area of the walls of a part of the period [nm^2; of a contour: nm] per nm of their height.
+double wall_perimeter(const Case& part) {
     double sum = 0;
-    for (const geometry::Opening& opening : the_case.mask.openings)
-        sum += the_case.domain.extruded()   ? 2
-               : the_case.domain.revolved() ? 1
-                                            : 0.5 * pi * (opening.width_x + opening.width_y);
-    return sum;
+    for (const geometry::Opening& opening : part.mask.openings)
+        sum += part.domain.extruded()   ? 2
+               : part.domain.revolved() ? 1
+                                        : 0.5 * pi * (opening.width_x + opening.width_y);
+    return sum / part.fold.copies();
 }
 
 /// Elements per area of a wall [1/nm^2; of a contour: 1/nm]: one for each grid face that the
@@ -40,7 +41,9 @@ double elements_per_area(const geometry::Domain& domain) {
 Estimate estimate_run(const Case& the_case) {
     Estimate estimate;
     const double before = static_cast<double>(peak_memory_bytes());
-    Simulation simulation(the_case);
+    const Case part = symmetric_part(the_case);
+    estimate.computed = computed_share(part.fold);
+    Simulation simulation(part);
     const Expectation expected = expect(the_case, simulation.open_field());
     estimate.warnings = charging_warnings(the_case, expected);
     // The tables that are made once are made here; then one short advance with all that belongs to
@@ -56,7 +59,7 @@ Estimate estimate_run(const Case& the_case) {
     const double now = static_cast<double>(simulation.surface().size());
     const double walls = expected.depth_nm - expected.mask_loss_nm;
     estimate.elements = static_cast<std::size_t>(std::max(
-        0.5 * now, now + walls * wall_perimeter(the_case) * elements_per_area(the_case.domain)));
+        0.5 * now, now + walls * wall_perimeter(part) * elements_per_area(the_case.domain)));
     const double most = std::max(now, static_cast<double>(estimate.elements));
     const double growth = estimate.elements / std::max(1.0, now);
     estimate.voxels = static_cast<std::size_t>(growth * simulation.front().band().size());
@@ -80,8 +83,9 @@ std::string estimate_text(const Case& the_case, const Estimate& e) {
     text << "# grid: " << the_case.domain.cells_x;
     if (!the_case.domain.planar_contour()) text << " x " << the_case.domain.cells_y;
     text << " cells of " << the_case.domain.spacing
-         << (the_case.domain.revolved() ? " nm from the axis out, about " : " nm across, about ")
-         << e.voxels << " voxels and " << e.elements << " surface elements at the end\n"
+         << (the_case.domain.revolved() ? " nm from the axis out" : " nm across") << '\n'
+         << "# computed: " << e.computed << ", about " << e.voxels << " voxels and " << e.elements
+         << " surface elements at the end\n"
          << "# rays: " << the_case.rays_per_element << " per element and refresh, "
          << the_case.ions_per_species << " reflected ions per species\n"
          << "# memory: about " << std::ceil(e.memory_mb) << " MB at most\n"
@@ -98,6 +102,7 @@ nlohmann::json estimate_json(const Case& the_case, const Estimate& e) {
     warnings.insert(warnings.end(), e.warnings.begin(), e.warnings.end());
     return {{"title", the_case.title},
             {"spacing_nm", the_case.domain.spacing},
+            {"computed", e.computed},
             {"voxels", e.voxels},
             {"surface_elements", e.elements},
             {"memory_MB", e.memory_mb},

@@ -10,8 +10,9 @@ namespace rille::engine {
 
 /// What a run will cost, before it is started.
 struct Estimate {
-    std::size_t elements = 0; ///< surface elements at the expected end
-    std::size_t voxels = 0;   ///< of the narrow band at the expected end
+    std::string computed;     ///< what of the period is computed, mirrored to the rest
+    std::size_t elements = 0; ///< of the surface that is computed, at the expected end
+    std::size_t voxels = 0;   ///< of its narrow band at the expected end
     double memory_mb = 0;
     int refreshes = 0;                 ///< of the arrivals, two for each advance
     double process_s = 0;              ///< simulated time

@@ -3,6 +3,7 @@
 
 #include "engine/metrics.hpp"
 #include "engine/number_text.hpp"
+#include "engine/symmetric_part.hpp"
 #include "geometry/band.hpp"
 #include "geometry/check.hpp"
 
@@ -14,24 +15,25 @@
 namespace rille::engine {
 namespace {
 
-/// The state of the front as files and metrics want it, with the arrivals if they can be had.
-SurfaceState snapshot(const Case& the_case, Simulation& simulation, bool solved = true) {
+/// The state of the front as files and metrics want it, on the whole period, with the arrivals if
+/// they can be had. The simulation is that of `part`.
+SurfaceState snapshot(const Case& part, Simulation& simulation, bool solved = true) {
     SurfaceState state;
     state.time_s = simulation.time_s();
-    const std::size_t step = std::min(simulation.step_index(), the_case.steps.size() - 1);
-    state.step = the_case.steps[step].name;
+    const std::size_t step = std::min(simulation.step_index(), part.steps.size() - 1);
+    state.step = part.steps[step].name;
     state.surface = simulation.surface();
     state.grown = simulation.films();
     state.displacement = simulation.displacement_errors();
     if (solved)
-        fill_state(state, the_case, simulation.arrivals());
+        fill_state(state, part, simulation.arrivals());
     else
         state.material = simulation.materials();
-    return state;
+    return unfolded(part, state);
 }
 
-HistoryRow history_row(const Case& the_case, Simulation& simulation, const std::string& step,
-                       double step_start_s) {
+HistoryRow history_row(const Case& the_case, const Case& part, Simulation& simulation,
+                       const std::string& step, double step_start_s) {
     const fluxes::SurfaceStep& solved = simulation.arrivals();
     HistoryRow row;
     row.time_s = simulation.time_s();
@@ -50,7 +52,8 @@ HistoryRow history_row(const Case& the_case, Simulation& simulation, const std::
     row.rays = simulation.health().rays;
     row.lost_rays = simulation.health().lost_rays;
     row.largest_move = simulation.last_move_cells();
-    measure_row(the_case, simulation.surface(), row);
+    measure_row(the_case, geometry::unfold(part.fold, part.domain, simulation.surface()).surface,
+                row);
     return row;
 }
 
@@ -229,6 +232,7 @@ using Clock = std::chrono::steady_clock;
 /// A run on its way: what it needs beside the simulation.
 struct Course {
     const Case& the_case;
+    const Case part; ///< what is computed of it
     RunObserver& observer;
     const std::atomic<bool>& stop;
     Simulation simulation;
@@ -238,11 +242,11 @@ struct Course {
     Clock::time_point started = Clock::now();
 
     Course(const Case& c, RunObserver& told, const std::atomic<bool>& stopped)
-        : the_case(c), observer(told), stop(stopped), simulation(c),
+        : the_case(c), part(symmetric_part(c)), observer(told), stop(stopped), simulation(part),
           expected(expect(c, simulation.open_field())), watch(c, told) {}
     Course(const Case& c, RunObserver& told, const std::atomic<bool>& stopped, const RunState& from)
-        : the_case(c), observer(told), stop(stopped), simulation(c, from.simulation),
-          expected(expect(c)), watch(c, told), state(from) {
+        : the_case(c), part(symmetric_part(c)), observer(told), stop(stopped),
+          simulation(part, from.simulation), expected(expect(c)), watch(c, told), state(from) {
         watch.recall(simulation, state.history);
     }
     double wall_seconds() const {
@@ -271,7 +275,7 @@ double next_arc_data(const Course& run) {
 void write_arc_data(Course& run) {
     const std::size_t step = std::min(run.simulation.step_index(), run.the_case.steps.size() - 1);
     const std::string& plasma = run.simulation.arriving_plasma();
-    SurfaceFlux flux = surface_flux(run.the_case, run.simulation, plasma);
+    SurfaceFlux flux = unfolded(run.part, surface_flux(run.part, run.simulation, plasma));
     flux.state.step = run.the_case.steps[step].name;
     run.observer.surveyed(flux);
 }
@@ -281,7 +285,7 @@ bool measure_step_end(Course& run, std::size_t index) {
     const std::string& step = run.the_case.steps[index].name;
     if (!is_measured_after(run.the_case, step)) return false;
     run.state.after.push_back(
-        measure_after(run.the_case, snapshot(run.the_case, run.simulation), step));
+        measure_after(run.the_case, snapshot(run.part, run.simulation), step));
     return true;
 }
 
@@ -294,7 +298,7 @@ void one_refresh(Course& run) {
     simulation.step(std::min(run.state.next_frame_s, arc_data_s));
     std::vector<HistoryRow>& history = run.state.history;
     history.push_back(
-        history_row(run.the_case, simulation, run.the_case.steps[index].name, start_s));
+        history_row(run.the_case, run.part, simulation, run.the_case.steps[index].name, start_s));
     const double of_step = simulation.step_index() > index ? 1.0 : simulation.step_progress();
     run.watch.look(simulation, history.back());
     run.observer.progressed(simulation, history.back(), run.expected.share(index, of_step));
@@ -302,7 +306,7 @@ void one_refresh(Course& run) {
     const bool frame_due = simulation.time_s() >= run.state.next_frame_s * (1 - 1e-12);
     const bool asked = simulation.step_index() > index && measure_step_end(run, index);
     if ((frame_due || asked) && !simulation.finished())
-        run.observer.framed(snapshot(run.the_case, simulation));
+        run.observer.framed(snapshot(run.part, simulation));
     if (frame_due) run.state.next_frame_s += run.frame_interval();
     if (!simulation.finished())
         run.observer.resumable(frame_due || asked, [&] { return run.saved(); });
@@ -315,7 +319,7 @@ RunResult follow_recipe(Course& run) {
     Simulation& simulation = run.simulation;
     try {
         if (run.state.history.empty()) {
-            run.observer.framed(snapshot(run.the_case, simulation));
+            run.observer.framed(snapshot(run.part, simulation));
             run.state.next_frame_s = run.frame_interval();
             const auto& times = run.the_case.arc_data_s;
             if (std::find(times.begin(), times.end(), 0.0) != times.end()) write_arc_data(run);
@@ -330,17 +334,19 @@ RunResult follow_recipe(Course& run) {
         record.failure = error.what();
         result.error = std::current_exception();
     }
-    result.last = snapshot(run.the_case, simulation, record.failure.empty());
+    result.last = snapshot(run.part, simulation, record.failure.empty());
     result.shape = simulation.ledger().parts();
     record.warnings = run.watch.warnings();
     note_health(run.the_case, run.expected, simulation, record);
+    record.computed = computed_share(run.part.fold);
     record.resumed = run.state.resumed;
     record.wall_seconds = run.wall_seconds();
     // Frames, pictures of progress, the state that is kept, and what is made once at the start.
     record.timings.push_back({"all_else", record.wall_seconds - simulation.timings().sum()});
     result.history = std::move(run.state.history);
     result.after = std::move(run.state.after);
-    const auto front = std::make_shared<geometry::Front>(simulation.front());
+    const auto front =
+        std::make_shared<geometry::Front>(geometry::unfold(run.part.fold, simulation.front()));
     result.write_level_set = [front](const std::string& path) { front->write_vdb(path); };
     return result;
 }

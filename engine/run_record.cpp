@@ -110,6 +110,7 @@ json record_json(const Case& c, const RunRecord& record, const std::vector<std::
               {"spacing_asked_nm", c.spacing_asked},
               {"rays_per_element", c.rays_per_element},
               {"ions_per_species", c.ions_per_species},
+              {"computed", record.computed},
               {"surface_elements", record.elements},
               {"voxels", record.voxels},
               {"refreshes", record.refreshes},

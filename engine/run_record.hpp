@@ -39,7 +39,8 @@ struct RunRecord {
     double simulated_s = 0;
     int resumed = 0;                      ///< how often the run was taken up after a stop
     int refreshes = 0;                    ///< of the arrivals
-    std::size_t elements = 0, voxels = 0; ///< of the front at the end
+    std::string computed;                 ///< what of the period was computed, mirrored to the rest
+    std::size_t elements = 0, voxels = 0; ///< of the front that was computed, at the end
     std::uint64_t rays = 0;
     std::uint64_t lost_rays = 0;
     double redistance_shift = 0; ///< [cells] largest accumulated

@@ -9,7 +9,7 @@
 namespace rille::engine {
 namespace {
 
-const std::string mark = "rille state 2\n";
+const std::string mark = "rille state 3\n";
 
 template <class Archive, class Row>
 void visit_row(Archive& archive, Row& row) {

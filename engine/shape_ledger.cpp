@@ -70,9 +70,14 @@ double ShapePart::unexplained_nm(const Place& p) const {
 }
 
 ShapeLedger::ShapeLedger(const Case& c)
-    : domain_(c.domain), sites_(feature_sites(c)),
+    : domain_(c.fold.whole(c.domain)), fold_(c.fold), origin_(c.fold.origin(c.domain)),
+      sites_(feature_sites(c)),
       amounts_(fluxes::cause_count + fluxes::ion_paths + c.mechanism.neutrals.size()),
       since_(faces_each * sites_.size()), start_(since_), now_(since_), removed_(since_.size()) {
+    for (geometry::FeatureSite& site : sites_) {
+        site.centre_x += origin_.x;
+        site.centre_y += origin_.y;
+    }
     const double h = domain_.spacing;
     const double highest = c.start ? c.start->high : c.mask.thickness + c.liner_thickness;
     top_ = h * (std::ceil(highest / h) + 4);
@@ -104,16 +109,28 @@ ShapeLedger::Spot ShapeLedger::spot(const Vec3& at, const Vec3& normal) const {
     return best;
 }
 
-void ShapeLedger::put_wall(const geometry::Surface& surface, std::size_t element, const Spot& here,
-                           const std::vector<double>& rates, Readings& readings) const {
-    const Vec3 normal = surface.normal[element], centre = surface.centre[element];
+ShapeLedger::Patch ShapeLedger::patch(const geometry::Surface& surface, std::size_t element,
+                                      int copy) const {
+    const auto moved = [&](const Vec3& p) { return fold_.image(copy, p + origin_); };
+    Patch patch{moved(surface.centre[element]),
+                fold_.image(copy, surface.normal[element]),
+                {},
+                surface.area[element]};
+    for (const int corner : surface.corners[element])
+        if (corner >= 0) patch.corners.push_back(moved(surface.vertices[corner]));
+    return patch;
+}
+
+void ShapeLedger::put_wall(const Patch& patch, const Spot& here, const std::vector<double>& rates,
+                           Readings& readings) const {
+    const Vec3 normal = patch.normal, centre = patch.centre;
     const double sideways = std::hypot(normal.x, normal.y);
     Extent heights;
-    for (const int corner : surface.corners[element])
-        if (corner >= 0) heights.add(surface.vertices[corner].z);
+    for (const Vec3& corner : patch.corners)
+        heights.add(corner.z);
     const bool planar = domain_.planar_contour(), round = sites_[here.opening].round;
     const double size =
-        planar ? heights.high - heights.low : surface.area[element] * sideways; // seen sideways
+        planar ? heights.high - heights.low : patch.area * sideways; // seen sideways
     auto& places =
         readings[faces_each * here.opening + (round || here.across < 0 ? left_or_all : right_wall)];
     over_places(-heights.high, -heights.low, -top_, domain_.spacing,
@@ -126,15 +143,15 @@ void ShapeLedger::put_wall(const geometry::Surface& surface, std::size_t element
                 });
 }
 
-void ShapeLedger::put_floor(const geometry::Surface& surface, std::size_t element, const Spot& here,
-                            const std::vector<double>& rates, Readings& readings) const {
-    const Vec3 normal = surface.normal[element], centre = surface.centre[element];
+void ShapeLedger::put_floor(const Patch& patch, const Spot& here, const std::vector<double>& rates,
+                            Readings& readings) const {
+    const Vec3 normal = patch.normal, centre = patch.centre;
     Extent across;
-    for (const int corner : surface.corners[element])
-        if (corner >= 0) across.add(spot(surface.vertices[corner], normal).across);
+    for (const Vec3& corner : patch.corners)
+        across.add(spot(corner, normal).across);
     const bool planar = domain_.planar_contour();
     const double size =
-        planar ? across.high - across.low : surface.area[element] * normal.z; // seen from above
+        planar ? across.high - across.low : patch.area * normal.z; // seen from above
     auto& places = readings[faces_each * here.opening + floor_face];
     over_places(across.low, across.high, first_, domain_.spacing,
                 [&](std::size_t place, double middle, double share) {
@@ -144,6 +161,18 @@ void ShapeLedger::put_floor(const geometry::Surface& surface, std::size_t elemen
                     places[place].add(share * size, centre.z + lean, std::hypot(normal.x, normal.y),
                                       rates, normal.z);
                 });
+}
+
+void ShapeLedger::put(const Patch& patch, const std::vector<double>& rates,
+                      Readings& readings) const {
+    const Vec3 normal = patch.normal;
+    const Spot here = spot(patch.centre, normal);
+    // The gas of an opening lies on the side of its axis.
+    const bool faces_axis = (sites_[here.opening].round ? 1 : here.across) * here.outward < 0;
+    if (std::hypot(normal.x, normal.y) >= at_45_deg && faces_axis)
+        put_wall(patch, here, rates, readings);
+    if (normal.z >= at_65_deg && patch.centre.z <= floor_below_)
+        put_floor(patch, here, rates, readings);
 }
 
 ShapeLedger::Readings ShapeLedger::read(const geometry::Surface& surface,
@@ -156,14 +185,8 @@ ShapeLedger::Readings ShapeLedger::read(const geometry::Surface& surface,
         if (surface.chain[e] != 0) continue;
         for (std::size_t k = 0; k < rates.size(); ++k)
             rates[k] = k < cause.size() ? cause[k][e] : supply[k - cause.size()][e];
-        const Vec3 normal = surface.normal[e];
-        const Spot here = spot(surface.centre[e], normal);
-        // The gas of an opening lies on the side of its axis.
-        const bool faces_axis = (sites_[here.opening].round ? 1 : here.across) * here.outward < 0;
-        if (std::hypot(normal.x, normal.y) >= at_45_deg && faces_axis)
-            put_wall(surface, e, here, rates, readings);
-        if (normal.z >= at_65_deg && surface.centre[e].z <= floor_below_)
-            put_floor(surface, e, here, rates, readings);
+        for (int copy = 0; copy < fold_.copies(); ++copy)
+            put(patch(surface, e, copy), rates, readings);
     }
     for (auto& face : readings)
         for (Reading& reading : face) {

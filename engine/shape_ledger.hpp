@@ -3,6 +3,7 @@
 
 #include "fluxes/causes.hpp"
 #include "geometry/domain.hpp"
+#include "geometry/fold.hpp"
 #include "geometry/metrology.hpp"
 #include "geometry/surface.hpp"
 
@@ -84,14 +85,22 @@ private:
         double outward = 0; ///< part of the normal along that
     };
     Spot spot(const geometry::Vec3& at, const geometry::Vec3& normal) const;
-    void put_wall(const geometry::Surface&, std::size_t element, const Spot&,
-                  const std::vector<double>& rates, Readings&) const;
-    void put_floor(const geometry::Surface&, std::size_t element, const Spot&,
-                   const std::vector<double>& rates, Readings&) const;
+    /// An element, or one of its mirror images in the whole period.
+    struct Patch {
+        geometry::Vec3 centre, normal;
+        std::vector<geometry::Vec3> corners;
+        double area = 0;
+    };
+    Patch patch(const geometry::Surface&, std::size_t element, int copy) const;
+    void put(const Patch&, const std::vector<double>& rates, Readings&) const;
+    void put_wall(const Patch&, const Spot&, const std::vector<double>& rates, Readings&) const;
+    void put_floor(const Patch&, const Spot&, const std::vector<double>& rates, Readings&) const;
     bool begins(std::size_t face, std::size_t place, const std::vector<Reading>&) const;
     bool stands(std::size_t face, std::size_t place, const Reading&) const;
 
-    geometry::Domain domain_;
+    geometry::Domain domain_; ///< the whole period
+    geometry::Fold fold_;
+    geometry::Vec3 origin_; ///< of the part that surfaces cover
     std::vector<geometry::FeatureSite> sites_;
     double top_ = 0;         ///< heights are counted down from here [nm]
     double first_ = 0;       ///< places of floors are counted from here [nm]

@@ -375,7 +375,12 @@ void Simulation::accept(Trial&& trial, const fluxes::SurfaceStep& step) {
 void Simulation::find_isolated() {
     const auto apart = [](int chain) { return chain != 0; };
     if (std::none_of(surface_.chain.begin(), surface_.chain.end(), apart)) return;
-    for (const auto& part : geometry::find_isolated_parts(front_, surface_)) {
+    const auto parts = case_.fold.any()
+                           ? geometry::find_isolated_parts(
+                                 geometry::unfold(case_.fold, front_),
+                                 geometry::unfold(case_.fold, case_.domain, surface_).surface)
+                           : geometry::find_isolated_parts(front_, surface_);
+    for (const auto& part : parts) {
         const double size = std::cbrt(part.volume) + 4 * case_.domain.spacing;
         const bool known =
             std::any_of(isolated_.begin(), isolated_.end(), [&](const IsolatedEvent& event) {

@@ -106,7 +106,7 @@ done
 
 # A point that is told to stop saves its state, for whoever comes next.
 study_of kill 'slurm: {retries: {killed: 0}}'
-sed -i 's/spacing: 8/spacing: 1/; s/3 s}/30 s}/' kill/case.yaml
+sed -i 's/spacing: 8/spacing: 1/; s/14 nm/60 nm/; s/3 s}/60 s}/' kill/case.yaml
 sed -i 's/, 150 V, 200 V//' kill/study.yaml
 begun() { # begun POINT: waits until a worker has begun with it
     for _ in $(seq 600); do ls -A killed/points 2>/dev/null | grep -q "^\.$1\..*[0-9]\$" && return; sleep 0.02; done
