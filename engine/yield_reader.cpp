@@ -172,10 +172,8 @@ AngleLaw read_angle_law(const YamlNode& node, const Context& c) {
         else if (name == "plateau then line")
             law = PlateauLinear{c.parameters.value(map.required("plateau"), angle)};
         else if (name == "peaked") {
-            YamamuraAngle peaked;
-            peaked.f = c.parameters.value(map.required("exponent"), {{}, {0, 15, true}}, 2);
-            peaked.optimum_deg = c.parameters.value(map.required("peak"), angle, 65);
-            law = peaked;
+            const double f = c.parameters.value(map.required("exponent"), {{}, {0, 15, true}}, 2);
+            law = YamamuraAngle(f, c.parameters.value(map.required("peak"), angle, 65));
         }
     }
     map.finish();

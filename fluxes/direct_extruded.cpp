@@ -23,6 +23,8 @@ public:
         : IonGather(domain, surface, wanted), surface_(surface), tables_(tables), wanted_(wanted),
           sky_(domain, surface), seen_(surface.size()) {
         const std::size_t count = surface_.size(), ions = tables_.ions().size();
+        for (const double angle : tables_.angles())
+            turned_over_.push_back(angle_node(tables_.angles(), -angle));
         flux_.assign(ions, std::vector<double>(count, 0.0));
         over_elements([&](int e) {
             for (double part : gauss)
@@ -160,7 +162,7 @@ private:
                 const auto& [element, image, weight] = average_->parts[i];
                 const float* part = &single[element * angles];
                 for (int k = first; k < end; ++k)
-                    row[k] += weight * (image ? on_row(part, -tables_.angles()[k]) : part[k]);
+                    row[k] += weight * (image ? at_node(part, turned_over_[k]) : part[k]);
             }
             for (int k = first; k < end; ++k)
                 rows[e * angles + k] = static_cast<float>(row[k]);
@@ -185,9 +187,11 @@ private:
         });
     }
 
-    double on_row(const float* row, double angle) const {
-        const AngleNode at = angle_node(tables_.angles(), angle);
+    static double at_node(const float* row, const AngleNode& at) {
         return row[at.node] + at.part * (double(row[at.node + 1]) - row[at.node]);
+    }
+    double on_row(const float* row, double angle) const {
+        return at_node(row, angle_node(tables_.angles(), angle));
     }
     void sum_own(int e) {
         const std::vector<int>& sums = wanted_.of(e);
@@ -208,6 +212,7 @@ private:
     const IonTables& tables_;
     const WantedSums& wanted_;
     OpenSky sky_;
+    std::vector<AngleNode> turned_over_;  ///< per angle of the tables: where minus that lies
     std::vector<NodeRange> nodes_;        ///< per element, of its rows
     std::vector<NodeRange> single_nodes_; ///< likewise, of what averages take from it
     std::vector<std::vector<Visible>> seen_;

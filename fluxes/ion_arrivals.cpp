@@ -88,6 +88,9 @@ void add_up(const Setting& s, int e, std::vector<double>& reflected, IonArrivals
         if (!paths.empty()) paths[(std::size_t(e) * ion_paths + path) * m + i] += value;
     };
     ions.reflected.at(e, reflected);
+    double* bounced = ions.bounced.data() + e * ions.sums.members.size();
+    for (std::size_t slot = 0; slot < reflected.size(); ++slot)
+        bounced[ions.adds_to[slot % sums]] += reflected[slot] / batches;
     for (std::size_t j = 0; j < wanted.size(); ++j) {
         const bool fast = ions.by_fast_neutrals(wanted[j]);
         const std::size_t i =
@@ -123,6 +126,7 @@ IonArrivals gather_ions(const Setting& s, const std::vector<IonReflection>& refl
     ions.sums = sampling.detailed ? every_tally(s.mechanism) : sum_tallies(s.mechanism);
     const std::size_t n = s.surface.size(), m = ions.sums.mechanism.tallies.size();
     ions.tallies = static_cast<int>(m);
+    ions.bounced.assign(n * ions.sums.members.size(), 0);
     ions.total.assign(n * m, 0);
     ions.batch.assign(batches, std::vector<double>(n * m, 0));
     const bool paths = sampling.detailed || sampling.causes;

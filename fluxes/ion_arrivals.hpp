@@ -71,7 +71,8 @@ struct IonArrivals {
     int tallies = 0;             ///< of the mechanism by sums
     std::vector<double> by_path; ///< [(element * ion_paths + path) * tallies + m], if asked for
     std::vector<std::vector<double>> by_path_batch; ///< [batch], where they are asked for
-    std::vector<double> total;                      ///< [element][tally], direct and reflected
+    std::vector<double> bounced; ///< [element][sum]: reflected, of all materials in reach
+    std::vector<double> total;   ///< [element][tally], direct and reflected
     std::vector<std::vector<double>> batch; ///< [batch][element][tally]: the same of one batch
 
     const double* at(int element, int b) const {

@@ -37,7 +37,7 @@ double reflection_probability(const IonReflection& law, double cos_incidence) {
     const double theta = std::acos(std::clamp(cos_incidence, 0.0, 1.0)) / degree;
     if (theta <= law.critical_deg || law.critical_deg >= 90) return 0.0;
     const double x = (theta - law.critical_deg) / (90 - law.critical_deg);
-    return law.probability * std::pow(x, law.exponent);
+    return law.probability * (law.exponent == 1 ? x : std::pow(x, law.exponent));
 }
 
 double energy_kept(const IonReflection& law, double ion_amu, double cos_incidence) {

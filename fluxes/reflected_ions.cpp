@@ -63,8 +63,11 @@ public:
     ReflectedIons run() {
         std::vector<Chunk> chunks = plan();
         tbb::parallel_for(std::size_t(0), chunks.size(), [&](std::size_t c) {
+            const std::uint64_t key =
+                stream_key(options_.seed, stream, options_.refresh, chunks[c].ion, chunks[c].batch);
+            const ScrambledPoints points(key);
             for (int i = 0; i < chunks[c].count; ++i)
-                follow(chunks[c], chunks[c].first + i);
+                follow(chunks[c], chunks[c].first + i, key, points);
         });
         ReflectedIons result;
         result.sums = static_cast<int>(wanted_.members.size());
@@ -185,10 +188,8 @@ private:
     bool acts(int ion) const { return !own_sums_[ion].empty(); }
 
     /// One ion from its first contact until it stays, leaves, or cannot do anything any more.
-    void follow(Chunk& chunk, int index) const {
-        const std::uint64_t batch_key =
-            stream_key(options_.seed, stream, options_.refresh, chunk.ion, chunk.batch);
-        const ScrambledPoints points(batch_key);
+    void follow(Chunk& chunk, int index, std::uint64_t batch_key,
+                const ScrambledPoints& points) const {
         const auto i = static_cast<std::uint32_t>(index);
         const Strike strike = std::visit(
             [&](const auto& s) { return s.draw(chunk.ion, chunk.batch, points, i, chunk.of); },

@@ -39,16 +39,19 @@ constexpr double unit_interval(std::uint64_t bits) {
 /// Method: Owen (1995); permutations by hashing bits upwards, Laine & Karras (2011) [from memory].
 class ScrambledPoints {
 public:
-    explicit ScrambledPoints(std::uint64_t key) : key_(key) {}
+    explicit ScrambledPoints(std::uint64_t key) : key_(key) {
+        for (int pair = 0; pair < usual_pairs; ++pair)
+            usual_[pair] = keys_of(pair);
+    }
 
     /// Dimensions 2 * pair and 2 * pair + 1 of point `index`, each in [0, 1).
     std::array<double, 2> pair(std::uint32_t index, int pair) const {
-        const std::uint64_t key = mix64(key_ + 0x632be59bd9b4e019ULL * (1 + std::uint64_t(pair)));
+        const Keys keys = pair < usual_pairs ? usual_[pair] : keys_of(pair);
         const std::uint32_t i =
-            pair == 0 ? index : reverse(permute_upwards(reverse(index), mix64(key ^ 1)));
+            pair == 0 ? index : reverse(permute_upwards(reverse(index), keys.order));
         // Both dimensions hold the digits lowest first, as the permutation wants them.
-        return {fraction(permute_upwards(i, mix64(key ^ 2))),
-                fraction(permute_upwards(second_dimension(i), mix64(key ^ 3)))};
+        return {fraction(permute_upwards(i, keys.first)),
+                fraction(permute_upwards(second_dimension(i), keys.second))};
     }
     /// Dimensions 0 to 3.
     std::array<double, 4> four(std::uint32_t index) const {
@@ -57,6 +60,16 @@ public:
     }
 
 private:
+    /// Names of the permutations of a pair.
+    struct Keys {
+        std::uint64_t order = 0, first = 0, second = 0;
+    };
+    static constexpr int usual_pairs = 3; ///< found once; further ones at each point
+
+    Keys keys_of(int pair) const {
+        const std::uint64_t key = mix64(key_ + 0x632be59bd9b4e019ULL * (1 + std::uint64_t(pair)));
+        return {mix64(key ^ 1), mix64(key ^ 2), mix64(key ^ 3)};
+    }
     static std::uint32_t reverse(std::uint32_t v) {
         v = ((v >> 1) & 0x55555555u) | ((v & 0x55555555u) << 1);
         v = ((v >> 2) & 0x33333333u) | ((v & 0x33333333u) << 2);
@@ -94,6 +107,7 @@ private:
     static double fraction(std::uint32_t digits) { return reverse(digits) * (1.0 / 4294967296.0); }
 
     std::uint64_t key_;
+    std::array<Keys, usual_pairs> usual_;
 };
 
 } // namespace rille::fluxes

@@ -92,13 +92,10 @@ void tabulate(const Setting& s, const IonArrivals& ions, int e, const DirectIons
     const geometry::Vec3& n = s.surface.normal[e];
     const double turned =
         s.domain.planar_contour() ? std::atan2(n.x, n.z) : std::acos(std::clamp(n.z, -1.0, 1.0));
-    std::vector<double> left(angles, 1.0), bounced(sums, 0.0), reflected;
+    std::vector<double> left(angles, 1.0);
+    const double* bounced = ions.bounced.data() + e * sums;
     if (!ions.reflected.from_angle.empty()) {
-        ions.reflected.at(e, reflected);
-        for (std::size_t slot = 0; slot < reflected.size(); ++slot)
-            bounced[ions.adds_to[slot % ions.adds_to.size()]] += reflected[slot] / batches;
-        const bool any =
-            std::any_of(bounced.begin(), bounced.end(), [](double sum) { return sum != 0; });
+        const bool any = std::any_of(bounced, bounced + sums, [](double sum) { return sum != 0; });
         for (std::size_t a = 0; any && a < angles; ++a)
             left[a] = share_after_turn(turned, ions.reflected.from_angle[e], rates.angles[a]);
     }

@@ -16,8 +16,7 @@ struct AngleFactor {
 
     double operator()(const FlatAngle&) const { return 1.0; }
     double operator()(const PlateauCosine& law) const {
-        const double edge = std::cos(law.plateau_deg * degree);
-        return cosine >= edge ? 1.0 : cosine / edge;
+        return cosine >= law.edge ? 1.0 : cosine / law.edge;
     }
     double operator()(const PlateauLinear& law) const {
         const double theta = std::acos(cosine) / degree;
@@ -25,8 +24,7 @@ struct AngleFactor {
     }
     double operator()(const YamamuraAngle& law) const {
         const double x = 1.0 / cosine;
-        const double slope = law.f * std::cos(law.optimum_deg * degree);
-        return std::exp(law.f * std::log(x) - slope * (x - 1.0));
+        return std::exp(law.f * std::log(x) - law.slope * (x - 1.0));
     }
 };
 
@@ -113,6 +111,12 @@ struct Stretched {
 
 } // namespace
 
+PlateauCosine::PlateauCosine(double degrees)
+    : plateau_deg(degrees), edge(std::cos(degrees * degree)) {}
+
+YamamuraAngle::YamamuraAngle(double exponent, double degrees)
+    : f(exponent), optimum_deg(degrees), slope(exponent * std::cos(degrees * degree)) {}
+
 YamamuraTawaraTerms yamamura_tawara_terms(const YamamuraTawaraLaw& law, double energy_ev) {
     const auto [z1, m1, z2, m2, us, q, w, s] = law;
     const double r = screening(z1, z2), m = m1 + m2, ratio = m2 / m1;
@@ -154,7 +158,7 @@ YamamuraAngle yamamura_angle(const CollisionPair& pair, double atom_density, dou
                              std::pow(1.0 + 1.38 * std::pow(ratio, h), 2.0);
     const double z = 1.0 - std::sqrt(threshold / energy_ev);
     const double f = z > 0.0 ? sigmund_exponent * (1.0 + 2.5 * (1.0 - z) / z) : steepest;
-    return {std::min(f, steepest), 90.0 - 286.0 * std::pow(psi, 0.45)};
+    return YamamuraAngle(std::min(f, steepest), 90.0 - 286.0 * std::pow(psi, 0.45));
 }
 
 double energy_yield(const EnergyLaw& law, double energy_ev) {

@@ -42,7 +42,9 @@ using EnergyLaw = std::variant<SquareRootLaw, YamamuraTawaraLaw, BohdanskyLaw, E
 struct FlatAngle {};
 /// 1 up to `plateau`, then cos(theta) / cos(plateau): 0 at grazing.
 struct PlateauCosine {
-    double plateau_deg = 45;
+    explicit PlateauCosine(double plateau_deg = 45);
+    double plateau_deg;
+    double edge; ///< its cosine
 };
 /// 1 up to `plateau`, then linear in theta to 0 at 90 deg.
 struct PlateauLinear {
@@ -51,8 +53,10 @@ struct PlateauLinear {
 /// x^f exp(-S (x - 1)), x = 1/cos(theta), S = f cos(theta_opt): peak at theta_opt, 0 at grazing.
 /// Yamamura, Radiat. Eff. 80, 57 (1984).
 struct YamamuraAngle {
-    double f = 2;
-    double optimum_deg = 65;
+    explicit YamamuraAngle(double f = 2, double optimum_deg = 65);
+    double f;
+    double optimum_deg;
+    double slope; ///< S
 };
 using AngleLaw = std::variant<FlatAngle, PlateauCosine, PlateauLinear, YamamuraAngle>;
 
